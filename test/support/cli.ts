@@ -1,0 +1,49 @@
+import { type ChildProcess, spawn } from 'node:child_process';
+import { fileURLToPath } from 'node:url';
+
+const root = fileURLToPath(new URL('../..', import.meta.url));
+
+/** Arguments of node for a rockhour command: what was built under `npm test`, else the sources. */
+function nodeArguments(args: readonly string[]): string[] {
+  return process.env.ROCKHOUR_TEST_BUILT
+    ? ['dist/main.js', ...args]
+    : ['--import', 'tsx', 'src/main.ts', ...args];
+}
+
+/** Starts `rockhour ARGS` in the checkout, as a user would; the caller ends it. */
+export function startRockhour(
+  args: readonly string[],
+  env: Readonly<Record<string, string>> = {},
+): ChildProcess {
+  return spawn(process.execPath, nodeArguments(args), {
+    cwd: root,
+    stdio: ['ignore', 'pipe', 'pipe'],
+    env: { ...process.env, ...env },
+  });
+}
+
+export interface Finished {
+  readonly code: number | null;
+  readonly stdout: string;
+  readonly stderr: string;
+}
+
+/** Runs `rockhour ARGS` to its end. */
+export function rockhour(
+  args: readonly string[],
+  env: Readonly<Record<string, string>> = {},
+): Promise<Finished> {
+  return new Promise((resolve, reject) => {
+    const child = startRockhour(args, env);
+    let stdout = '';
+    let stderr = '';
+    child.stdout?.on('data', (chunk: Buffer) => {
+      stdout += chunk.toString();
+    });
+    child.stderr?.on('data', (chunk: Buffer) => {
+      stderr += chunk.toString();
+    });
+    child.once('error', reject);
+    child.once('close', (code) => resolve({ code, stdout, stderr }));
+  });
+}
