@@ -17,8 +17,8 @@ const FIT_RANGE_K = [105, 900] as const;
 
 const GAS_FITS = {
   air: {
-    // R/M with R = 8.31451 J/molK and M = 28.9586 g/mol, both of Lemmon et al. 2000.
-    gasConstant_J_kgK: 8.31451 / 0.0289586,
+    // R/M, R = 8.31451 J/molK as in the equations of state, M = 28.96546 g/mol of CoolProp's air.
+    gasConstant_J_kgK: 8.31451 / 0.02896546,
     heatCapacity: [1007.208, -36.76615, -75.62033, 716.2563, -480.886],
     viscosity: [-0.5568883, 85.88544, -102.448, 115.8416, -77.94239, 22.57647],
     conductivity: [-0.945536, 112.8368, -91.3524, 69.99136, -23.03536],
