@@ -1,0 +1,154 @@
+/**
+ * Every failure that comes from outside the program: what a user typed, a file, a service. Misuse
+ * inside the program is a RangeError, a numerical failure a returned reason, a bad reading data.
+ */
+
+/** How the process ends; the one table of it, printed by `rockhour --help`. */
+export const EXIT_CODES = {
+  ok: { code: 0, meaning: 'done, or stopped as asked (SIGINT, SIGTERM)' },
+  usage: { code: 2, meaning: 'the command line or the configuration is wrong' },
+  input: { code: 3, meaning: 'a recording cannot be used' },
+  outside: { code: 4, meaning: 'a service, a port or the disk refused or did not answer' },
+  internal: { code: 70, meaning: 'a fault of rockhour itself' },
+} as const;
+export type ExitName = keyof typeof EXIT_CODES;
+
+interface ErrorKind {
+  readonly exit: ExitName;
+  /** What the code stands for, for the list in the documentation. */
+  readonly meaning: string;
+  /** What to do where the place that failed knows nothing better. */
+  readonly advice: string;
+}
+
+/** The catalogue. A test holds that each code is used somewhere in src. */
+export const ERRORS = {
+  USAGE: {
+    exit: 'usage',
+    meaning: 'A command, option or value on the command line is not one that rockhour knows.',
+    advice: 'See rockhour --help, or --help after the command.',
+  },
+  CONFIG_UNREADABLE: {
+    exit: 'usage',
+    meaning: 'The configuration file cannot be read, or is not YAML.',
+    advice: 'Check the path given with --config and the place named.',
+  },
+  CONFIG_INVALID: {
+    exit: 'usage',
+    meaning: 'The configuration has faults; all of them are listed.',
+    advice: 'Mend them and run rockhour check --config FILE until it finds none.',
+  },
+  UNIT_UNKNOWN: {
+    exit: 'usage',
+    meaning: 'The unit asked for is not in the configuration, or several are and none was named.',
+    advice: 'Name one with --unit.',
+  },
+  RECORDING_UNREADABLE: {
+    exit: 'input',
+    meaning: 'The recording cannot be opened or read.',
+    advice: 'Check the path given with --recording.',
+  },
+  RECORDING_MALFORMED: {
+    exit: 'input',
+    meaning: 'The recording is not CSV after RFC 4180, or a time in it cannot be read.',
+    advice: 'Fields are separated by commas; times are ISO 8601 with an offset, or seconds.',
+  },
+  RECORDING_COLUMN_MISSING: {
+    exit: 'input',
+    meaning: 'The recording lacks a column without which nothing can be estimated.',
+    advice: 'Columns are named as the channels of the configuration.',
+  },
+  RECORDING_TIME_BACK: {
+    exit: 'input',
+    meaning: 'Time runs back in the recording.',
+    advice: 'Sort the rows by time, or split the recording there.',
+  },
+  OUTPUT_UNWRITABLE: {
+    exit: 'outside',
+    meaning: 'An output file cannot be written.',
+    advice: 'Check that the folder exists, that it may be written to and that the disk has room.',
+  },
+  DAEMON_UNREACHABLE: {
+    exit: 'outside',
+    meaning: 'No rockhour daemon answers at the address given.',
+    advice: 'Check the address and that the daemon runs.',
+  },
+  DAEMON_REFUSED: {
+    exit: 'outside',
+    meaning: 'The daemon answered a request with an error.',
+    advice: 'The answer says why.',
+  },
+  PORT_IN_USE: {
+    exit: 'outside',
+    meaning: 'A port that rockhour should listen on cannot be had.',
+    advice: 'Stop the program that holds it, or configure another port.',
+  },
+  BROKER_UNREACHABLE: {
+    exit: 'outside',
+    meaning: 'The MQTT broker does not answer or refuses the connection.',
+    advice: 'Check mqtt.url, the user name and the password, and that the broker runs.',
+  },
+  DATABASE_UNREACHABLE: {
+    exit: 'outside',
+    meaning:
+      'The time-series database does not answer; what is due to it waits in the local store.',
+    advice: 'Check influx.url and that the database runs; nothing is lost meanwhile.',
+  },
+  STORE_FAILED: {
+    exit: 'outside',
+    meaning: 'The local store (SQLite) cannot be opened or written.',
+    advice: 'Check store.folder, its permissions and the room on the disk.',
+  },
+  INTERNAL: {
+    exit: 'internal',
+    meaning: 'Something happened that rockhour does not expect: a fault of its own.',
+    advice: 'Run it again with ROCKHOUR_DEBUG=1 to see where, and report it with that output.',
+  },
+} as const satisfies Readonly<Record<string, ErrorKind>>;
+export type ErrorCode = keyof typeof ERRORS;
+
+/**
+ * A failure of the catalogue. `message` says what was asked of whom and what came back; `advice`
+ * says what to do, from the catalogue unless the place that failed knows better.
+ */
+export class RockhourError extends Error {
+  override readonly name = 'RockhourError';
+  readonly advice: string;
+
+  constructor(
+    readonly code: ErrorCode,
+    message: string,
+    options: { readonly cause?: unknown; readonly advice?: string } = {},
+  ) {
+    super(message, options.cause === undefined ? undefined : { cause: options.cause });
+    this.advice = options.advice ?? ERRORS[code].advice;
+  }
+
+  get exitCode(): number {
+    return EXIT_CODES[ERRORS[this.code].exit].code;
+  }
+}
+
+/** What an unknown thrown value says, in one line. */
+export function reasonOf(thrown: unknown): string {
+  if (thrown instanceof Error) return thrown.message || thrown.name;
+  return String(thrown);
+}
+
+/** Replaces the user name and password of any URL in a text, which may go to a log or a screen. */
+export function withoutCredentials(text: string): string {
+  return text.replace(/([a-z][a-z0-9+.-]*:\/\/)[^\s/@]+@/gi, '$1***@');
+}
+
+/** The one message a user sees of a failure: no stack, no credentials. */
+export function explain(thrown: unknown): string {
+  const error =
+    thrown instanceof RockhourError
+      ? thrown
+      : new RockhourError('INTERNAL', reasonOf(thrown), { cause: thrown });
+  return withoutCredentials(`rockhour: ${error.message}\n${error.advice} [${error.code}]`);
+}
+
+export function exitCodeOf(thrown: unknown): number {
+  return thrown instanceof RockhourError ? thrown.exitCode : EXIT_CODES.internal.code;
+}
