@@ -78,6 +78,13 @@ function gasOf(name: string, fit: GasFit): Fluid {
   const hLow = 1000 * polynomial(integral, low / 1000);
   const hHigh = 1000 * polynomial(integral, high / 1000);
   const R = fit.gasConstant_J_kgK;
+  // Integral of cp/T: c0 ln T + c1 x + c2 x^2/2 + ...
+  const entropyTail = [0, ...fit.heatCapacity.slice(1).map((c, i) => c / (i + 1))];
+  const entropyWithin = (temperature_K: number): number =>
+    (fit.heatCapacity[0] as number) * Math.log(temperature_K) +
+    polynomial(entropyTail, temperature_K / 1000);
+  const sLow = entropyWithin(low);
+  const sHigh = entropyWithin(high);
   return Object.freeze({
     name,
     source: GAS_SOURCE,
@@ -93,6 +100,11 @@ function gasOf(name: string, fit: GasFit): Fluid {
       if (temperature_K < low) return hLow + cpLow * (temperature_K - low);
       if (temperature_K > high) return hHigh + cpHigh * (temperature_K - high);
       return 1000 * polynomial(integral, temperature_K / 1000);
+    },
+    entropy(temperature_K: number) {
+      if (temperature_K < low) return sLow + cpLow * Math.log(temperature_K / low);
+      if (temperature_K > high) return sHigh + cpHigh * Math.log(temperature_K / high);
+      return entropyWithin(temperature_K);
     },
     viscosity_Pa_s: transport(fit.viscosity, 1e-6),
     conductivity: transport(fit.conductivity, 1e-3),
