@@ -1,6 +1,6 @@
 import type { Fluid } from '../definitions.js';
 import { requirePositive } from '../misuse.js';
-import { derivativeOf, integralOf, polynomial } from './polynomial.js';
+import { derivativeOf, integralOf, polynomial } from '../polynomial.js';
 
 /** Polynomials in x = T/1000 K; the three gases are those of fixtures/gas_property_fits_105_900K.csv. */
 interface GasFit {

@@ -1,6 +1,6 @@
 import type { Solid } from '../definitions.js';
 import { requireAscending, requireEfficiency, requirePositive } from '../misuse.js';
-import { integralOf, polynomial } from './polynomial.js';
+import { integralOf, polynomial } from '../polynomial.js';
 import { type LowTemperatureShape, lowTemperatureForm } from './solidsLowTemperature.js';
 
 /** Below its range c_s keeps its end value, or follows the vibrations of the lattice. */
