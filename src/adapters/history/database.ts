@@ -1,0 +1,76 @@
+import { mkdirSync } from 'node:fs';
+import { dirname } from 'node:path';
+import SQLite from 'better-sqlite3';
+import { RockhourError, reasonOf } from '../../errors.js';
+
+export type Database = SQLite.Database;
+
+/**
+ * `full`: a commit is on the disk before it returns, a power cut undoes nothing. `normal`: a power
+ * cut may undo the last commits, but only as a whole and in order.
+ */
+export type Durability = 'full' | 'normal';
+
+/** One step per schema version; a step, once released, is never changed. */
+export type Migrations = readonly string[];
+
+/**
+ * Opens (or makes) a database file in WAL mode and brings its schema up to date.
+ * @throws RockhourError STORE_FAILED where the folder, the disk or the file is at fault
+ */
+export function openDatabase(file: string, durability: Durability, steps: Migrations): Database {
+  let database: Database | null = null;
+  try {
+    mkdirSync(dirname(file), { recursive: true });
+    database = new SQLite(file, { timeout: 2000 });
+    database.pragma('journal_mode = WAL');
+    database.pragma(`synchronous = ${durability === 'full' ? 'FULL' : 'NORMAL'}`);
+    migrate(database, file, steps);
+    return database;
+  } catch (thrown) {
+    database?.close();
+    throw storeFailure(`opening ${file}`, thrown);
+  }
+}
+
+function migrate(database: Database, file: string, steps: Migrations): void {
+  const version = Number(database.pragma('user_version', { simple: true }));
+  if (version > steps.length) {
+    throw new RockhourError(
+      'STORE_FAILED',
+      `opening ${file}: it was written by a newer rockhour (schema ${version}, known ${steps.length})`,
+      { advice: 'Run the newer version, or set another store.folder.' },
+    );
+  }
+  database.transaction(() => {
+    for (const step of steps.slice(version)) database.exec(step);
+    database.pragma(`user_version = ${steps.length}`);
+  })();
+}
+
+const ADVICE: Readonly<Record<string, string>> = {
+  SQLITE_FULL: 'The disk is full: make room. Readings wait at the broker until there is some.',
+  SQLITE_CORRUPT:
+    'The file is damaged: stop rockhour, keep the file for examination and start with another ' +
+    'store.folder; readings that are still at the broker come in again.',
+  SQLITE_NOTADB: 'The file is no database of rockhour: set another store.folder.',
+  SQLITE_READONLY: 'The file or its folder may not be written: check owner and permissions.',
+  SQLITE_BUSY: 'Another process holds the file: only one rockhour may use a store.folder.',
+  SQLITE_CANTOPEN: 'Check that store.folder exists and that its owner may write to it.',
+};
+
+/** What SQLite said, as an error of the catalogue. */
+export function storeFailure(what: string, thrown: unknown): RockhourError {
+  if (thrown instanceof RockhourError) return thrown;
+  const code = codeOf(thrown);
+  const known = Object.keys(ADVICE).find((name) => code.startsWith(name));
+  return new RockhourError('STORE_FAILED', `${what}: ${reasonOf(thrown)}${code && ` (${code})`}`, {
+    cause: thrown,
+    ...(known === undefined ? {} : { advice: ADVICE[known]! }),
+  });
+}
+
+function codeOf(thrown: unknown): string {
+  if (typeof thrown !== 'object' || thrown === null || !('code' in thrown)) return '';
+  return typeof thrown.code === 'string' ? thrown.code : '';
+}

@@ -1,0 +1,224 @@
+import type { Statement } from 'better-sqlite3';
+import { type Database, openDatabase, storeFailure } from './database.js';
+
+/** 0 good, 1 uncertain, 2 bad; 9 marks that a scan was closed at its deadline. */
+export const JOURNAL_QUALITY = { good: 0, uncertain: 1, bad: 2 } as const;
+export type ReadingQuality = keyof typeof JOURNAL_QUALITY;
+const CLOSE_MARK = 9;
+
+/** A reading on its way into the journal; `value` in SI units (mV as it is), NaN = none. */
+export interface JournalReading {
+  readonly unit: string;
+  readonly channel: string;
+  readonly time_ms: number;
+  readonly arrival_ms: number;
+  readonly value: number;
+  readonly quality: ReadingQuality;
+}
+
+export type JournalEntry =
+  | ({ readonly kind: 'reading'; readonly seq: number } & JournalReading)
+  /** All scans of the unit up to this index were closed here. */
+  | {
+      readonly kind: 'close';
+      readonly seq: number;
+      readonly unit: string;
+      readonly scan_index: number;
+      readonly arrival_ms: number;
+    };
+
+interface Row {
+  seq: number;
+  source: number;
+  time: number;
+  arrival: number;
+  value: number | null;
+  quality: number;
+}
+
+const SCHEMA = [
+  `CREATE TABLE sources (
+     no INTEGER PRIMARY KEY, unit TEXT NOT NULL, channel TEXT NOT NULL, UNIQUE (unit, channel));
+   -- time: source time in ms, or the scan index of a close mark; value: SI, NULL for a bad reading.
+   CREATE TABLE entries (
+     seq INTEGER PRIMARY KEY, source INTEGER NOT NULL, time INTEGER NOT NULL,
+     arrival INTEGER NOT NULL, value REAL, quality INTEGER NOT NULL);`,
+];
+
+/** Stands for the unit itself as the source of its close marks. */
+const UNIT_ITSELF = '';
+
+/**
+ * Readings in the order of their arrival, on the disk before they are acknowledged, and the marks
+ * that say when a scan was closed by the clock: scans are made from what stands here and from
+ * nothing else, so that a restart or a replay makes the same scans again.
+ *
+ * Entries are numbered without gaps from 1 on; numbers are never used twice.
+ */
+export class Journal {
+  private database: Database | null = null;
+  private insert!: Statement;
+  private select!: Statement;
+  private last = 0;
+  private readonly numbers = new Map<string, number>();
+  private readonly names = new Map<number, { unit: string; channel: string }>();
+
+  constructor(private readonly file: string) {}
+
+  start(): void {
+    if (this.database) return;
+    const database = openDatabase(this.file, 'full', SCHEMA);
+    this.database = database;
+    this.insert = database.prepare(
+      'INSERT INTO entries (seq, source, time, arrival, value, quality) VALUES (?, ?, ?, ?, ?, ?)',
+    );
+    this.select = database.prepare('SELECT * FROM entries WHERE seq > ? ORDER BY seq LIMIT ?');
+    const sources = database.prepare('SELECT no, unit, channel FROM sources').all();
+    for (const row of sources as { no: number; unit: string; channel: string }[]) {
+      this.numbers.set(key(row.unit, row.channel), row.no);
+      this.names.set(row.no, row);
+    }
+    this.last = this.first('SELECT max(seq) AS n FROM entries') ?? 0;
+  }
+
+  stop(): void {
+    this.database?.close();
+    this.database = null;
+  }
+
+  /** Number of the newest entry, 0 before the first. */
+  get lastSeq(): number {
+    return this.last;
+  }
+
+  /**
+   * Writes readings in one synced transaction: when it returns, they are on the disk.
+   * @returns the number of the newest entry
+   */
+  append(readings: readonly JournalReading[]): number {
+    return this.commit(readings.length, (seq, i) => {
+      const reading = readings[i]!;
+      const value = Number.isNaN(reading.value) ? null : reading.value;
+      this.insert.run(
+        seq,
+        this.sourceNumber(reading.unit, reading.channel),
+        reading.time_ms,
+        reading.arrival_ms,
+        value,
+        JOURNAL_QUALITY[reading.quality],
+      );
+    });
+  }
+
+  /** Notes that all scans of a unit up to `scan_index` are closed from here on. */
+  appendClose(unit: string, scan_index: number, arrival_ms: number): number {
+    return this.commit(1, (seq) => {
+      const source = this.sourceNumber(unit, UNIT_ITSELF);
+      this.insert.run(seq, source, scan_index, arrival_ms, null, CLOSE_MARK);
+    });
+  }
+
+  /** Entries after `seq`, oldest first, at most `most`. */
+  read(seq: number, most: number): JournalEntry[] {
+    try {
+      return (this.select.all(seq, most) as Row[]).map((row) => this.entry(row));
+    } catch (thrown) {
+      throw storeFailure(`reading the journal ${this.file}`, thrown);
+    }
+  }
+
+  /** Number of the last entry that arrived before this time, 0 where there is none. */
+  seqBefore(arrival_ms: number): number {
+    // Arrival times follow the numbers but for a clock that was set: no index is worth its writes.
+    let low = (this.first('SELECT min(seq) AS n FROM entries') ?? 1) - 1;
+    let high = this.last;
+    const at = this.open().prepare('SELECT arrival FROM entries WHERE seq = ?').pluck();
+    while (low < high) {
+      const middle = Math.ceil((low + high) / 2);
+      if ((at.get(middle) as number) < arrival_ms) low = middle;
+      else high = middle - 1;
+    }
+    return low;
+  }
+
+  /** Deletes entries up to `seq`, but never the newest, whose number is the memory of all before. */
+  forget(seq: number): number {
+    try {
+      const end = Math.min(seq, this.last - 1);
+      return this.open().prepare('DELETE FROM entries WHERE seq <= ?').run(end).changes;
+    } catch (thrown) {
+      throw storeFailure(`thinning the journal ${this.file}`, thrown);
+    }
+  }
+
+  private commit(count: number, write: (seq: number, i: number) => void): number {
+    if (count === 0) return this.last;
+    const known = this.names.size;
+    try {
+      this.open().transaction(() => {
+        for (let i = 0; i < count; i++) write(this.last + 1 + i, i);
+      })();
+    } catch (thrown) {
+      this.forgetSources(known);
+      throw storeFailure(`writing to the journal ${this.file}`, thrown);
+    }
+    this.last += count;
+    return this.last;
+  }
+
+  private sourceNumber(unit: string, channel: string): number {
+    const known = this.numbers.get(key(unit, channel));
+    if (known !== undefined) return known;
+    const no = this.names.size + 1;
+    this.open()
+      .prepare('INSERT INTO sources (no, unit, channel) VALUES (?, ?, ?)')
+      .run(no, unit, channel);
+    this.numbers.set(key(unit, channel), no);
+    this.names.set(no, { unit, channel });
+    return no;
+  }
+
+  /** A transaction that failed took the sources it had named with it. */
+  private forgetSources(known: number): void {
+    for (const [no, name] of [...this.names].slice(known)) {
+      this.names.delete(no);
+      this.numbers.delete(key(name.unit, name.channel));
+    }
+  }
+
+  private entry(row: Row): JournalEntry {
+    const name = this.names.get(row.source)!;
+    if (row.quality === CLOSE_MARK) {
+      return {
+        kind: 'close',
+        seq: row.seq,
+        unit: name.unit,
+        scan_index: row.time,
+        arrival_ms: row.arrival,
+      };
+    }
+    return {
+      kind: 'reading',
+      seq: row.seq,
+      unit: name.unit,
+      channel: name.channel,
+      time_ms: row.time,
+      arrival_ms: row.arrival,
+      value: row.value ?? Number.NaN,
+      quality: row.quality === 0 ? 'good' : row.quality === 1 ? 'uncertain' : 'bad',
+    };
+  }
+
+  private open(): Database {
+    if (!this.database) throw new RangeError('journal must be started, got one that is not');
+    return this.database;
+  }
+
+  private first(sql: string): number | null {
+    return this.open().prepare(sql).pluck().get() as number | null;
+  }
+}
+
+function key(unit: string, channel: string): string {
+  return `${unit}\n${channel}`;
+}
