@@ -1,0 +1,178 @@
+import { existsSync } from 'node:fs';
+import { join } from 'node:path';
+import helmet from '@fastify/helmet';
+import rateLimit from '@fastify/rate-limit';
+import { fastifySSE } from '@fastify/sse';
+import fastifyStatic from '@fastify/static';
+import swagger from '@fastify/swagger';
+import fastify, { type FastifyBaseLogger, LogController } from 'fastify';
+import {
+  jsonSchemaTransform,
+  validatorCompiler,
+  type ZodTypeProvider,
+} from 'fastify-type-provider-zod';
+import { sendError } from './error-answer.js';
+import { HttpFault } from './faults.js';
+import { JsonWriter } from './json.js';
+import { alarmRoutes } from './routes/alarms.js';
+import { historyRoutes } from './routes/history.js';
+import { statusRoutes } from './routes/status.js';
+import { streamRoutes } from './routes/stream.js';
+import { unitRoutes } from './routes/units.js';
+import type { HttpApp, RouteContext } from './routes.js';
+import type { PlantService } from './service.js';
+import { LiveStream } from './stream.js';
+import { DEFAULT_TUNING, type HttpTuning } from './tuning.js';
+
+export interface HttpOptions {
+  readonly log: FastifyBaseLogger;
+  /** Folder of the built page. */
+  readonly pageFolder: string;
+  readonly tuning?: Partial<HttpTuning>;
+}
+
+/** `rockhour/`, `/rockhour/` -> `/rockhour`; `` and `/` -> ``. */
+export function normalPrefix(prefix: string): string {
+  const bare = prefix.replace(/^\/+|\/+$/g, '');
+  return bare === '' ? '' : `/${bare}`;
+}
+
+/**
+ * The page may load nothing but its own files, from its own place, and may not be framed. HSTS,
+ * COOP and Origin-Agent-Cluster are left out: over plain HTTP, usual inside a plant's network,
+ * browsers ignore them with a console message; whoever adds TLS in front adds HSTS there.
+ */
+const SECURITY_HEADERS = {
+  contentSecurityPolicy: {
+    useDefaults: false,
+    directives: {
+      defaultSrc: ["'none'"],
+      scriptSrc: ["'self'"],
+      styleSrc: ["'self'"],
+      imgSrc: ["'self'"],
+      connectSrc: ["'self'"],
+      baseUri: ["'none'"],
+      formAction: ["'none'"],
+      frameAncestors: ["'none'"],
+    },
+  },
+  strictTransportSecurity: false,
+  crossOriginOpenerPolicy: false,
+  originAgentCluster: false,
+  referrerPolicy: { policy: 'no-referrer' as const },
+};
+
+async function addPlugins(app: HttpApp, prefix: string, context: RouteContext): Promise<void> {
+  await app.register(helmet, SECURITY_HEADERS);
+  await app.register(rateLimit, {
+    max: context.tuning.questions_per_min,
+    timeWindow: 60_000,
+    errorResponseBuilder: (_request, { max, ttl }) =>
+      new HttpFault(
+        429,
+        'too_many_requests',
+        `more than ${max} questions within a minute; ask again in ${Math.ceil(ttl / 1000)} s`,
+        { expected: `at most ${max} a minute` },
+      ),
+  });
+  // Awaited: the plugin takes in only routes that are declared after it.
+  await app.register(fastifySSE, { serializer: context.json.write });
+  await app.register(swagger, {
+    openapi: {
+      openapi: '3.1.0',
+      info: {
+        title: 'rockhour',
+        version: context.service.version,
+        description:
+          'Front positions, stored energy and remaining discharge hours of packed-bed stores. ' +
+          'rockhour advises; it trips nothing and writes nothing to the control system. Every ' +
+          'answer that is not a success has the body {"error": {code, message, field, value, ' +
+          'expected}}.',
+      },
+      servers: [{ url: prefix === '' ? '/' : prefix }],
+    },
+    transform: jsonSchemaTransform,
+  });
+}
+
+async function addPage(app: HttpApp, prefix: string, folder: string): Promise<void> {
+  const hide = { schema: { hide: true } };
+  if (prefix !== '') {
+    app.get(prefix, hide, async (_request, reply) => reply.redirect(`${prefix}/`, 308));
+  }
+  if (!existsSync(join(folder, 'index.html'))) {
+    app.get(`${prefix}/`, hide, async () => {
+      throw new HttpFault(503, 'page_not_built', 'the page has not been built; the API is there', {
+        expected: 'npm run build before the start',
+      });
+    });
+    return;
+  }
+  await app.register(fastifyStatic, {
+    root: folder,
+    prefix: `${prefix}/`,
+    wildcard: false,
+    cacheControl: false,
+    decorateReply: false,
+    setHeaders: (reply, path) => {
+      // Files under assets/ have a hash of their content in the name.
+      const forever = /[\\/]assets[\\/]/.test(path);
+      reply.header('cache-control', forever ? 'public, max-age=31536000, immutable' : 'no-cache');
+    },
+  });
+}
+
+/** Builds the app without listening; the stream has still to be started. */
+export async function createHttpApp(
+  service: PlantService,
+  pathPrefix: string,
+  options: HttpOptions,
+): Promise<{ app: HttpApp; stream: LiveStream }> {
+  const prefix = normalPrefix(pathPrefix);
+  const tuning = { ...DEFAULT_TUNING, ...options.tuning };
+  const json = new JsonWriter();
+  const stream = new LiveStream(service, json, tuning);
+  const context: RouteContext = { service, stream, json, tuning };
+
+  const app: HttpApp = fastify({
+    loggerInstance: options.log,
+    logController: new LogController({ disableRequestLogging: true }),
+    bodyLimit: 16 * 1024,
+    forceCloseConnections: true,
+  }).withTypeProvider<ZodTypeProvider>();
+  app.removeContentTypeParser('text/plain');
+  app.setValidatorCompiler(validatorCompiler);
+  // The schemas of the answers document and type them; a test holds every answer against them.
+  app.setSerializerCompiler(() => json.write);
+  app.setReplySerializer((payload) => json.write(payload));
+  app.setErrorHandler(sendError);
+  app.setNotFoundHandler((request) => {
+    throw new HttpFault(
+      404,
+      'unknown_route',
+      `there is nothing at ${request.method} ${request.url}`,
+      {
+        field: 'path',
+        value: request.url,
+        expected: `a route of ${prefix}/api/openapi.json`,
+      },
+    );
+  });
+
+  await addPlugins(app, prefix, context);
+  await app.register(
+    async (scope) => {
+      const typed = scope.withTypeProvider<ZodTypeProvider>() as HttpApp;
+      typed.addHook('onSend', async (_request, reply) => {
+        if (!reply.hasHeader('cache-control')) reply.header('cache-control', 'no-store');
+      });
+      for (const add of [statusRoutes, unitRoutes, historyRoutes, alarmRoutes, streamRoutes]) {
+        add(typed, context);
+      }
+    },
+    { prefix },
+  );
+  await addPage(app, prefix, options.pageFolder);
+  app.addHook('preClose', async () => stream.stop());
+  return { app, stream };
+}

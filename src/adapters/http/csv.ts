@@ -1,0 +1,14 @@
+import type { HistoryPoint } from './service.js';
+
+/** RFC 4180: header row, CRLF, quotes where needed; null is an empty field. */
+export function toCsv(columns: readonly string[], rows: readonly HistoryPoint[]): string {
+  const lines = [columns.map(field).join(',')];
+  for (const row of rows) lines.push(columns.map((column) => field(row[column] ?? null)).join(','));
+  return `${lines.join('\r\n')}\r\n`;
+}
+
+function field(value: string | number | null): string {
+  if (value === null) return '';
+  const text = String(value);
+  return /[",\r\n]/.test(text) ? `"${text.replaceAll('"', '""')}"` : text;
+}

@@ -1,0 +1,82 @@
+import type { FastifyError, FastifyReply, FastifyRequest } from 'fastify';
+import { hasZodFastifySchemaValidationErrors } from 'fastify-type-provider-zod';
+import { type FaultBody, HttpFault, show } from './faults.js';
+import { keysOf } from './schema/questions.js';
+
+type Part = 'querystring' | 'params' | 'body' | 'headers';
+type Issue = { instancePath: string; message?: string; keyword: string; params: object };
+type Detail = { field: string | null; value: unknown; expected: string | null };
+
+function sent(request: FastifyRequest, part: Part): unknown {
+  return { querystring: request.query, params: request.params, body: request.body, headers: {} }[
+    part
+  ];
+}
+
+function valueAt(source: unknown, path: readonly string[]): unknown {
+  return path.reduce<unknown>(
+    (at, key) =>
+      typeof at === 'object' && at !== null ? (at as Record<string, unknown>)[key] : null,
+    source,
+  );
+}
+
+function detailsOf(issue: Issue, request: FastifyRequest, part: Part): Detail[] {
+  const source = sent(request, part);
+  const path = issue.instancePath.split('/').filter(Boolean);
+  if (issue.keyword === 'unrecognized_keys') {
+    const known = keysOf(request.routeOptions.schema?.[part]);
+    const expected = known.length > 0 ? `only ${known.join(', ')}` : 'nothing here';
+    const { keys = [] } = issue.params as { keys?: string[] };
+    return keys.map((field) => ({ field, value: valueAt(source, [field]) ?? null, expected }));
+  }
+  const value = valueAt(source, path) ?? null;
+  return [{ field: path.join('.') || part, value, expected: issue.message ?? null }];
+}
+
+/** A question that its schema refuses: the first fault in words, the others listed. */
+function fromValidation(error: FastifyError, request: FastifyRequest): HttpFault {
+  const part = (error.validationContext ?? 'querystring') as Part;
+  const issues = error.validation as unknown as Issue[];
+  const [first, ...others] = issues.flatMap((issue) => detailsOf(issue, request, part));
+  const { field, value, expected } = first ?? { field: part, value: null, expected: null };
+  const unknown = issues[0]?.keyword === 'unrecognized_keys';
+  const missing = !unknown && value === null;
+  const found = missing ? 'is missing' : unknown ? 'is not known here' : `is ${show(value)}`;
+  const message = `${field} ${found}; expected ${expected}`;
+  return new HttpFault(400, unknown ? 'unknown_field' : 'wrong_value', message, {
+    ...(field === null ? {} : { field }),
+    value,
+    ...(expected === null ? {} : { expected }),
+    others,
+  });
+}
+
+/** Any error of a request as the answer that the client gets. */
+export function answerOf(error: FastifyError | Error, request: FastifyRequest): HttpFault {
+  if (error instanceof HttpFault) return error;
+  if (hasZodFastifySchemaValidationErrors(error)) {
+    return fromValidation(error as unknown as FastifyError, request);
+  }
+  const status = (error as FastifyError).statusCode ?? 500;
+  if (status >= 400 && status < 500) {
+    return new HttpFault(status, 'unreadable_body', error.message, {
+      expected: 'a JSON body with content-type application/json',
+    });
+  }
+  return new HttpFault(
+    500,
+    'internal',
+    `an error of the daemon itself, written to its log under request ${request.id}`,
+  );
+}
+
+/** fastify's error handler. Faults of the client are not logged; ours are. */
+export function sendError(error: Error, request: FastifyRequest, reply: FastifyReply): FaultBody {
+  const fault = answerOf(error, request);
+  if (fault.statusCode >= 500 && fault.code !== 'no_estimate_yet') {
+    request.log.error({ err: fault.cause ?? error, url: request.url }, fault.message);
+  }
+  reply.code(fault.statusCode).type('application/json; charset=utf-8');
+  return fault.body();
+}

@@ -1,0 +1,65 @@
+import { Counter, Gauge, Registry } from 'prom-client';
+import type { PlantService } from './service.js';
+
+/** A counter's name as Prometheus wants it: `mqtt.late-messages` -> `rockhour_mqtt_late_messages_total`. */
+export function metricName(counter: string): string {
+  const bare = counter.replace(/[^A-Za-z0-9_]+/g, '_').replace(/_total$/, '');
+  return `rockhour_${bare}_total`;
+}
+
+/** Two counters whose names differ only in punctuation share a metric; the label keeps them apart. */
+function addCounters(registry: Registry, counters: Record<string, number>): void {
+  const made = new Map<string, Counter>();
+  for (const [name, value] of Object.entries(counters)) {
+    const metric = metricName(name);
+    let counter = made.get(metric);
+    if (counter === undefined) {
+      const help = 'A count of the daemon, by its own name';
+      counter = new Counter({ name: metric, help, labelNames: ['counter'], registers: [registry] });
+      made.set(metric, counter);
+    }
+    counter.inc({ counter: name }, value);
+  }
+}
+
+/** The text of /metrics in the Prometheus exposition format; made anew for each scrape. */
+export async function metricsText(
+  service: PlantService,
+  extra: Record<string, number>,
+): Promise<{ text: string; contentType: string }> {
+  const registry = new Registry();
+  const gauge = (name: string, help: string, labelNames: string[] = []) =>
+    new Gauge({ name, help, labelNames, registers: [registry] });
+
+  gauge('rockhour_info', 'Always 1; the version is a label', ['version']).set(
+    { version: service.version },
+    1,
+  );
+  const part = gauge('rockhour_part_ok', '1 where this part of the daemon is well', ['part']);
+  for (const { name, ok } of service.health()) part.set({ part: name }, ok ? 1 : 0);
+
+  const age = gauge('rockhour_reading_age_seconds', 'Age of the newest reading', ['unit']);
+  const stale = gauge('rockhour_stale', '1 where the readings of a unit are stale', ['unit']);
+  const charge = gauge('rockhour_state_of_charge_ratio', 'Dispatchable over rated energy', [
+    'unit',
+  ]);
+  const stands = gauge('rockhour_standing', 'Alarms and alerts in the list', [
+    'unit',
+    'class',
+    'state',
+  ]);
+  for (const unit of service.unitIds()) {
+    const now = service.now(unit);
+    if (now === undefined) continue;
+    if (now.age_s !== null) age.set({ unit }, now.age_s);
+    stale.set({ unit }, now.stale ? 1 : 0);
+    if (now.estimate !== null) charge.set({ unit }, now.estimate.state_of_charge);
+    for (const event of service.standing(unit)) {
+      stands.inc({ unit, class: event.class, state: event.state });
+    }
+  }
+  gauge('process_resident_memory_bytes', 'Resident memory').set(process.memoryUsage().rss);
+  gauge('process_uptime_seconds', 'Time since the process began').set(process.uptime());
+  addCounters(registry, { ...service.counters(), ...extra });
+  return { text: await registry.metrics(), contentType: registry.contentType };
+}

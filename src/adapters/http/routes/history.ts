@@ -1,0 +1,97 @@
+import { z } from 'zod';
+import { toCsv } from '../csv.js';
+import { HttpFault, wrongValue } from '../faults.js';
+import { faults, type Routes, unitOf } from '../routes.js';
+import { unitHistorySchema } from '../schema/answers.js';
+import { historyQuery, unitParams } from '../schema/questions.js';
+import type { HistoryPoint, PlantService, UnitNow } from '../service.js';
+
+const DAY_MS = 86_400_000;
+const POINTS = 500;
+
+/**
+ * A span of source time. It ends with the newest estimate unless told otherwise, so that a
+ * recording of last year shows its own last day; without an estimate, with the clock.
+ */
+export function spanOf(
+  query: { from?: number | undefined; to?: number | undefined },
+  newest: string | undefined,
+): { from: number; to: number } {
+  const to = query.to ?? (newest === undefined ? Date.now() : Date.parse(newest));
+  const from = query.from ?? to - DAY_MS;
+  if (from < to) return { from, to };
+  throw wrongValue(
+    'from',
+    new Date(from).toISOString(),
+    `a time before "to", which is ${new Date(to).toISOString()}`,
+  );
+}
+
+function chosenSeries(service: PlantService, now: UnitNow, asked: readonly string[] | undefined) {
+  const known = service.historySeries(now.unit.id);
+  if (asked === undefined) return known;
+  const unknown = asked.find((name) => !known.includes(name));
+  if (unknown === undefined) return [...new Set(asked)];
+  const expected = known.length > 0 ? `some of ${known.join(', ')}` : 'no series is stored yet';
+  throw new HttpFault(
+    400,
+    'unknown_series',
+    `unit ${now.unit.id} has no series ${JSON.stringify(unknown)}; ${expected}`,
+    { field: 'series', value: unknown, expected },
+  );
+}
+
+function wantsCsv(format: 'json' | 'csv' | undefined, accept: string | undefined): boolean {
+  if (format !== undefined) return format === 'csv';
+  return /\btext\/csv\b/i.test(accept ?? '') && !/application\/json/i.test(accept ?? '');
+}
+
+/** GET /api/units/{unit}/history as JSON or CSV. */
+export const historyRoutes: Routes = (app, { service }) => {
+  app.get(
+    '/api/units/:unit/history',
+    {
+      schema: {
+        summary: 'Stored series of a unit, thinned evenly to a number of points',
+        description:
+          'Without from and to: the 24 h before the newest estimate. CSV by ?format=csv or ' +
+          'Accept: text/csv.',
+        tags: ['history'],
+        params: unitParams,
+        querystring: historyQuery,
+        response: {
+          200: {
+            description: 'JSON, or CSV after RFC 4180',
+            content: {
+              'application/json': { schema: unitHistorySchema },
+              'text/csv': { schema: z.string() },
+            },
+          },
+          ...faults,
+        },
+      },
+    },
+    async (request, reply) => {
+      const now = unitOf(service, request.params.unit);
+      const unit = now.unit.id;
+      const { format, points = POINTS, series: asked } = request.query;
+      const { from, to } = spanOf(request.query, now.estimate?.time);
+      const series = chosenSeries(service, now, asked);
+      const stored = service.history(unit, from, to, points);
+      const rows = stored.map((row): HistoryPoint => {
+        const values = series.map((name) => [name, row[name] ?? null] as const);
+        return { time: row.time, ...Object.fromEntries(values) };
+      });
+      reply.header('vary', 'Accept');
+      if (wantsCsv(format, request.headers.accept)) {
+        const name = unit.replace(/[^\w.-]+/g, '_');
+        reply.header('content-disposition', `attachment; filename="${name}-history.csv"`);
+        reply.type('text/csv; charset=utf-8; header=present');
+        return toCsv(['time', ...series], rows);
+      }
+      const at = (time_ms: number) => new Date(time_ms).toISOString();
+      reply.type('application/json; charset=utf-8');
+      return { unit, from: at(from), to: at(to), series, rows };
+    },
+  );
+};

@@ -1,0 +1,70 @@
+import { z } from 'zod';
+import { metricsText } from '../metrics.js';
+import { faults, type RouteContext, type Routes } from '../routes.js';
+import { countersSchema, healthSchema } from '../schema/answers.js';
+
+/** What this adapter counts itself, beside the counters of the daemon. */
+function ownCounters({ json, stream }: RouteContext): Record<string, number> {
+  return { http_non_finite_numbers: json.nonFinite, http_slow_streams_ended: stream.slowEnded };
+}
+
+/** GET /api/health, /api/counters, /metrics, /api/openapi.json */
+export const statusRoutes: Routes = (app, context) => {
+  const { service } = context;
+  const tags = ['status'];
+  // A probe must not be turned away because a page asks much.
+  const config = { rateLimit: false } as const;
+
+  app.get(
+    '/api/health',
+    {
+      config,
+      schema: {
+        summary: 'Whether every part of the daemon is well',
+        description: '200 if so, else 503; the body is the same.',
+        tags,
+        response: { 200: healthSchema, 503: healthSchema },
+      },
+    },
+    async (_request, reply) => {
+      const parts = service.health();
+      const ok = parts.every((part) => part.ok);
+      reply.code(ok ? 200 : 503);
+      return { ok, site: service.siteName, version: service.version, parts: [...parts] };
+    },
+  );
+
+  app.get(
+    '/api/counters',
+    {
+      schema: {
+        summary: 'Counts of the daemon',
+        tags,
+        response: { 200: countersSchema, ...faults },
+      },
+    },
+    async () => ({ counters: { ...service.counters(), ...ownCounters(context) } }),
+  );
+
+  app.get(
+    '/metrics',
+    {
+      config,
+      schema: {
+        summary: 'The same for Prometheus',
+        tags,
+        response: { 200: { content: { 'text/plain': { schema: z.string() } } } },
+      },
+    },
+    async (_request, reply) => {
+      const { text, contentType } = await metricsText(service, ownCounters(context));
+      reply.type(contentType);
+      return text;
+    },
+  );
+
+  app.get('/api/openapi.json', { schema: { hide: true } }, async (_request, reply) => {
+    reply.type('application/json; charset=utf-8');
+    return JSON.stringify(app.swagger());
+  });
+};

@@ -1,0 +1,87 @@
+import type { FastifyReply } from 'fastify';
+import { HttpFault, unknownUnit } from '../faults.js';
+import type { Routes } from '../routes.js';
+import { streamQuery } from '../schema/questions.js';
+import type { StreamSink } from '../stream-client.js';
+
+/** Media ranges that admit an event stream (RFC 9110, 12.5.1); a missing header admits all. */
+function admitsStream(accept: string | undefined): boolean {
+  if (accept === undefined || accept === '') return true;
+  return accept.split(',').some((range) => {
+    const [type = '', ...parameters] = range.split(';').map((part) => part.trim().toLowerCase());
+    const refused = parameters.some((parameter) => /^q=0(\.0*)?$/.test(parameter));
+    return !refused && ['text/event-stream', 'text/*', '*/*'].includes(type);
+  });
+}
+
+/**
+ * The plugin's own `send` waits for `drain` alone, which never comes from a client that went away
+ * with a full socket; so it only opens and closes the stream, and the writing is done here.
+ */
+function sinkOf(reply: FastifyReply): StreamSink {
+  const { raw, sse } = reply;
+  return {
+    write(text) {
+      if (raw.destroyed || raw.writableEnded || raw.write(text)) return Promise.resolve();
+      return new Promise((resolve) => {
+        const done = () => {
+          raw.off('drain', done);
+          raw.off('close', done);
+          resolve();
+        };
+        raw.once('drain', done);
+        raw.once('close', done);
+      });
+    },
+    destroy: () => void raw.destroy(),
+    end: () => sse.close(),
+    onClose: (callback) => void raw.once('close', callback),
+  };
+}
+
+/** GET /api/stream: Server-Sent Events. */
+export const streamRoutes: Routes = (app, { service, stream, tuning }) => {
+  app.get(
+    '/api/stream',
+    {
+      // `manual`: the plugin's own refusal would not have the form of our errors.
+      sse: { kind: 'manual', heartbeat: false },
+      schema: {
+        summary: 'Live stream',
+        description:
+          'Server-Sent Events: hello, state, event, beat. After a loss, send the last id as ' +
+          'Last-Event-ID (or last_event_id); hello then says "resumed", or "gap" where events ' +
+          'were missed that are no longer kept.',
+        tags: ['live'],
+        querystring: streamQuery,
+        produces: ['text/event-stream'],
+      },
+    },
+    async (request, reply) => {
+      const { profile, last_event_id } = request.query;
+      if (!admitsStream(request.headers.accept)) {
+        throw new HttpFault(406, 'not_acceptable', 'this route only sends text/event-stream', {
+          field: 'Accept',
+          value: request.headers.accept,
+          expected: 'text/event-stream',
+        });
+      }
+      if (profile !== undefined && service.now(profile) === undefined) {
+        throw unknownUnit(profile, service.unitIds(), 400);
+      }
+      if (stream.open >= tuning.streams_most) {
+        reply.header('retry-after', '5');
+        throw new HttpFault(
+          503,
+          'too_many_streams',
+          `${stream.open} live streams are open, the most that are served at once`,
+          { expected: `at most ${tuning.streams_most} streams` },
+        );
+      }
+      const lastId = request.headers['last-event-id'] ?? last_event_id ?? null;
+      reply.sse.keepAlive();
+      reply.sse.sendHeaders(200);
+      stream.attach(sinkOf(reply), typeof lastId === 'string' ? lastId : null, profile ?? null);
+    },
+  );
+};

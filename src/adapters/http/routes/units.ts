@@ -1,0 +1,125 @@
+import { HttpFault } from '../faults.js';
+import { faults, type Routes, unitOf } from '../routes.js';
+import {
+  unitHoursSchema,
+  unitListSchema,
+  unitNowSchema,
+  unitProfileSchema,
+} from '../schema/answers.js';
+import { hoursQuery, unitParams } from '../schema/questions.js';
+import type { PlantService, UnitNow } from '../service.js';
+import { ageOf, definitionView, profileView, stateView } from '../views.js';
+
+function noEstimate(unit: string): HttpFault {
+  return new HttpFault(
+    503,
+    'no_estimate_yet',
+    `unit ${unit} has no estimate yet: no scan of it has been taken in since it was set up`,
+    { field: 'unit', value: unit },
+  );
+}
+
+async function askHours(service: PlantService, now: UnitNow, powers: readonly number[]) {
+  const unit = now.unit.id;
+  try {
+    const { time, answers } = await service.hours(unit, powers);
+    return { unit, time, age_s: ageOf(service.now(unit) ?? now, time), answers };
+  } catch (cause) {
+    const why = cause instanceof Error ? cause.message : String(cause);
+    const fault = new HttpFault(
+      503,
+      'question_failed',
+      `the hours of unit ${unit} at ${powers.join(', ')} MW could not be computed: ${why}`,
+      { field: 'power_MW', value: powers },
+    );
+    fault.cause = cause;
+    throw fault;
+  }
+}
+
+/** GET /api/units, /api/units/{unit}, .../profile, .../hours */
+export const unitRoutes: Routes = (app, { service, tuning }) => {
+  const tags = ['units'];
+
+  app.get(
+    '/api/units',
+    {
+      schema: {
+        summary: 'All units at a glance',
+        tags,
+        response: { 200: unitListSchema, ...faults },
+      },
+    },
+    async () => ({
+      site: service.siteName,
+      version: service.version,
+      units: service.unitIds().flatMap((id) => {
+        const now = service.now(id);
+        if (now === undefined) return [];
+        const { estimate } = now;
+        return {
+          unit: id,
+          name: now.unit.name,
+          mode: estimate?.mode ?? null,
+          quality: estimate?.quality ?? null,
+          state_of_charge: estimate?.state_of_charge ?? null,
+          time: estimate?.time ?? null,
+          age_s: now.age_s,
+          stale: now.stale,
+        };
+      }),
+    }),
+  );
+
+  app.get(
+    '/api/units/:unit',
+    {
+      schema: {
+        summary: 'A unit now: definition, estimate, hours, age of its data',
+        tags,
+        params: unitParams,
+        response: { 200: unitNowSchema, ...faults },
+      },
+    },
+    async (request) => {
+      const now = unitOf(service, request.params.unit);
+      return { ...stateView(now), definition: definitionView(now.unit) };
+    },
+  );
+
+  app.get(
+    '/api/units/:unit/profile',
+    {
+      schema: {
+        summary: 'Temperatures along each store: estimate, sigma and readings',
+        tags,
+        params: unitParams,
+        response: { 200: unitProfileSchema, ...faults },
+      },
+    },
+    async (request) => {
+      const now = unitOf(service, request.params.unit);
+      if (now.profile === null) throw noEstimate(now.unit.id);
+      return { ...profileView(now.profile), age_s: ageOf(now, now.profile.time) };
+    },
+  );
+
+  app.get(
+    '/api/units/:unit/hours',
+    {
+      config: { rateLimit: { max: tuning.hours_per_min, timeWindow: 60_000 } },
+      schema: {
+        summary: 'Hours and energy left at given powers, from the present estimate',
+        tags,
+        params: unitParams,
+        querystring: hoursQuery,
+        response: { 200: unitHoursSchema, ...faults },
+      },
+    },
+    async (request) => {
+      const now = unitOf(service, request.params.unit);
+      if (now.estimate === null) throw noEstimate(now.unit.id);
+      return askHours(service, now, request.query.power_MW);
+    },
+  );
+};

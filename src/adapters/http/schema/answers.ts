@@ -1,0 +1,152 @@
+import { z } from 'zod';
+import { EVENT_KINDS } from '../../../core/watch/event.js';
+import { FAULT_CODES } from '../faults.js';
+import { dispatchSchema, estimateSchema, profileSchema, timeSchema } from './estimate.js';
+
+/** Schemas of the answers; the types of the views are made from them. */
+
+const storeDefinitionSchema = z.object({
+  id: z.string(),
+  kind: z.enum(['hot', 'cold']),
+  charge_inlet_at: z.enum(['top', 'bottom']),
+  length_m: z.number(),
+  diameter_m: z.number(),
+  reference_hot_degC: z.number(),
+  reference_cold_degC: z.number(),
+  outlet_limit_degC: z
+    .number()
+    .nullable()
+    .describe('A discharge ends when a hot outlet falls below, a cold outlet rises above this'),
+  strings: z.array(
+    z.object({
+      id: z.string(),
+      radius_m: z.number(),
+      area_share: z.number(),
+      thermocouples: z.array(z.object({ id: z.string(), position_m: z.number() })),
+    }),
+  ),
+});
+
+export const unitDefinitionSchema = z.object({
+  unit: z.string(),
+  name: z.string(),
+  rated_power_MW_el: z.number(),
+  rated_hours: z.number(),
+  scan_period_s: z.number(),
+  hours_at_MW_el: z.array(z.number()),
+  stores: z.array(storeDefinitionSchema),
+});
+
+/** The moving part of a unit: what the live stream sends. */
+export const unitStateSchema = z.object({
+  unit: z.string(),
+  estimate: estimateSchema.nullable(),
+  dispatch: dispatchSchema.nullable(),
+  age_s: z.number().nullable().describe('Age of the newest reading [s]; null before the first'),
+  stale: z.boolean(),
+  flow_kg_s: z.number().nullable(),
+  power_MW_el: z.number().nullable(),
+});
+
+export const unitNowSchema = unitStateSchema.extend({ definition: unitDefinitionSchema });
+export const streamStateSchema = unitStateSchema.extend({ profile: profileSchema.nullable() });
+
+export const unitListSchema = z.object({
+  site: z.string(),
+  version: z.string(),
+  units: z.array(
+    z.object({
+      unit: z.string(),
+      name: z.string(),
+      mode: z.enum(['charge', 'discharge', 'stand']).nullable(),
+      quality: z.string().nullable(),
+      state_of_charge: z.number().nullable(),
+      time: timeSchema.nullable(),
+      age_s: z.number().nullable(),
+      stale: z.boolean(),
+    }),
+  ),
+});
+
+export const unitHoursSchema = dispatchSchema.extend({ unit: z.string() });
+
+export const unitProfileSchema = profileSchema.extend({ age_s: z.number().nullable() });
+
+export const unitHistorySchema = z.object({
+  unit: z.string(),
+  from: timeSchema,
+  to: timeSchema,
+  series: z.array(z.string()),
+  rows: z.array(z.record(z.string(), z.union([z.number(), z.string(), z.null()]))),
+});
+
+const eventFields = {
+  id: z.string(),
+  unit: z.string(),
+  kind: z.enum(EVENT_KINDS),
+  class: z.enum(['alarm', 'alert']),
+  priority: z.enum(['high', 'medium', 'low']),
+  subject: z.string(),
+  time: timeSchema,
+  value: z.number().nullable(),
+  limit: z.number().nullable(),
+  message: z.string(),
+};
+
+export const watchEventSchema = z.object({
+  ...eventFields,
+  transition: z.enum(['raised', 'returned']),
+});
+
+export const standingEventSchema = z.object({
+  ...eventFields,
+  state: z.enum(['unacknowledged', 'acknowledged', 'returned_unacknowledged']),
+  acknowledged_by: z.string().nullable(),
+});
+
+export const alarmsSchema = z.object({ standing: z.array(standingEventSchema) });
+export const eventsSchema = z.object({
+  from: timeSchema,
+  to: timeSchema,
+  events: z.array(watchEventSchema),
+});
+
+export const acknowledgedSchema = z.object({
+  id: z.string(),
+  acknowledged_by: z.string(),
+  standing: standingEventSchema.nullable().describe('null once it has returned and left the list'),
+});
+
+export const healthSchema = z.object({
+  ok: z.boolean(),
+  site: z.string(),
+  version: z.string(),
+  parts: z.array(z.object({ name: z.string(), ok: z.boolean(), detail: z.string() })),
+});
+
+export const countersSchema = z.object({ counters: z.record(z.string(), z.number()) });
+
+export const faultSchema = z.object({
+  error: z.object({
+    code: z.enum(FAULT_CODES),
+    message: z.string(),
+    field: z.string().nullable(),
+    value: z.unknown(),
+    expected: z.string().nullable(),
+    others: z
+      .array(
+        z.object({
+          field: z.string().nullable(),
+          value: z.unknown(),
+          expected: z.string().nullable(),
+        }),
+      )
+      .optional(),
+  }),
+});
+
+export type UnitDefinitionView = z.output<typeof unitDefinitionSchema>;
+export type UnitStateView = z.output<typeof unitStateSchema>;
+export type UnitNowView = z.output<typeof unitNowSchema>;
+export type StreamStateView = z.output<typeof streamStateSchema>;
+export type UnitProfileView = z.output<typeof unitProfileSchema>;

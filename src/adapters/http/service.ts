@@ -1,0 +1,61 @@
+import type { UnitDefinition } from '../../core/definitions.js';
+import type { DispatchAnswer, Estimate, ProfileView } from '../../core/estimate.js';
+import type { WatchEvent } from '../../core/watch/event.js';
+
+/** An alarm or alert that stands now, or has returned and is not yet acknowledged. */
+export interface StandingEvent extends Omit<WatchEvent, 'transition'> {
+  readonly state: 'unacknowledged' | 'acknowledged' | 'returned_unacknowledged';
+  readonly acknowledged_by: string | null;
+}
+
+export interface UnitNow {
+  readonly unit: UnitDefinition;
+  readonly estimate: Estimate | null;
+  readonly profile: ProfileView | null;
+  readonly dispatch: { readonly time: string; readonly answers: readonly DispatchAnswer[] } | null;
+  /** Age of the newest reading against the wall clock [s], null before the first. */
+  readonly age_s: number | null;
+  readonly stale: boolean;
+  readonly flow_kg_s: number | null;
+  readonly power_MW_el: number | null;
+}
+
+export interface HealthPart {
+  readonly name: string;
+  readonly ok: boolean;
+  readonly detail: string;
+}
+
+export interface HistoryPoint {
+  readonly time: string;
+  readonly [series: string]: number | string | null;
+}
+
+export type ServiceMessage =
+  | { readonly kind: 'state'; readonly unit: string }
+  | { readonly kind: 'event'; readonly unit: string; readonly event: WatchEvent };
+
+/** What the daemon offers to the HTTP adapter; the adapter knows nothing else of the daemon. */
+export interface PlantService {
+  readonly siteName: string;
+  readonly version: string;
+  unitIds(): string[];
+  /** undefined for an unknown unit. */
+  now(unit: string): UnitNow | undefined;
+  hours(
+    unit: string,
+    powers_MW: readonly number[],
+  ): Promise<{ time: string; answers: DispatchAnswer[] }>;
+  /** At most `points` rows per call, thinned evenly on the server; series names as documented. */
+  history(unit: string, from_ms: number, to_ms: number, points: number): HistoryPoint[];
+  historySeries(unit: string): string[];
+  standing(unit?: string): StandingEvent[];
+  events(unit: string | undefined, from_ms: number, to_ms: number, most: number): WatchEvent[];
+  /** false where no such event stands. */
+  acknowledge(id: string, who: string): boolean;
+  health(): HealthPart[];
+  /** Counters by name: messages in, malformed, late, repeated, ... */
+  counters(): Record<string, number>;
+  /** Returns the function that ends the subscription. */
+  subscribe(listener: (message: ServiceMessage) => void): () => void;
+}

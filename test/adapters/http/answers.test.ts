@@ -1,0 +1,278 @@
+import { afterEach, describe, expect, it } from 'vitest';
+import {
+  acknowledgedSchema,
+  alarmsSchema,
+  countersSchema,
+  eventsSchema,
+  healthSchema,
+  unitHistorySchema,
+  unitHoursSchema,
+  unitListSchema,
+  unitNowSchema,
+  unitProfileSchema,
+} from '../../../src/adapters/http/schema/answers.js';
+import { testApp } from './httpApp.js';
+
+type Built = Awaited<ReturnType<typeof testApp>>;
+let built: Built | null = null;
+
+async function app(options?: Parameters<typeof testApp>[0]): Promise<Built> {
+  built = await testApp(options);
+  return built;
+}
+
+afterEach(async () => {
+  await built?.app.close();
+  built = null;
+});
+
+describe('the good answers, each held against the schema that documents it', () => {
+  it('gives the health with 200 while every part is well and 503 with the parts when one is not', async () => {
+    const { get, plant } = await app();
+    const well = await get('/api/health');
+    expect(well.statusCode).toBe(200);
+    expect(healthSchema.strict().parse(well.json()).ok).toBe(true);
+
+    plant.parts[1] = { name: 'database', ok: false, detail: 'connection refused' };
+    const ill = await get('/api/health');
+    expect(ill.statusCode).toBe(503);
+    expect(ill.json()).toMatchObject({
+      ok: false,
+      parts: [{ ok: true }, { name: 'database', ok: false, detail: 'connection refused' }],
+    });
+  });
+
+  it('lists the units', async () => {
+    const { get, plant } = await app();
+    const list = unitListSchema.strict().parse((await get('/api/units')).json());
+    expect(list.units).toEqual([
+      {
+        unit: 'north',
+        name: 'North unit',
+        mode: 'discharge',
+        quality: 'good',
+        state_of_charge: plant.moment.charged,
+        time: plant.time(),
+        age_s: 4,
+        stale: false,
+      },
+    ]);
+  });
+
+  it('gives a unit now, converted to the units of the edge', async () => {
+    const { get, plant } = await app();
+    const now = unitNowSchema.strict().parse((await get('/api/units/north')).json());
+    const service = plant.now('north')!;
+    const hot = now.definition.stores[0]!;
+    expect(hot).toMatchObject({
+      kind: 'hot',
+      charge_inlet_at: 'top',
+      length_m: 8,
+      reference_hot_degC: 500,
+      reference_cold_degC: 25,
+      outlet_limit_degC: 430,
+    });
+    expect(now.definition.rated_power_MW_el).toBe(2);
+    expect(now.definition.hours_at_MW_el).toEqual([1, 2]);
+    // 768.4 K - 273.15 K
+    expect(now.estimate!.stores.hot!.outlet_degC).toBe(495.25);
+    expect(now.estimate!.stores.hot!.fronts).toEqual(service.estimate!.stores.hot!.fronts);
+    expect(now.dispatch!.answers).toEqual(service.dispatch!.answers);
+  });
+
+  it('counts the age of the hours from the estimate they were computed from', async () => {
+    const { get, plant } = await app();
+    plant.step();
+    plant.age_s = 7;
+    const now = unitNowSchema.parse((await get('/api/units/north')).json());
+    // The script computes hours two scans of 30 s before the newest one.
+    expect(now.dispatch!.age_s).toBe(67);
+  });
+
+  it('gives a unit before its first scan with nulls instead of figures', async () => {
+    const { get, plant } = await app();
+    plant.started = false;
+    const answer = await get('/api/units/north');
+    expect(answer.statusCode).toBe(200);
+    expect(unitNowSchema.parse(answer.json())).toMatchObject({
+      estimate: null,
+      dispatch: null,
+      age_s: null,
+      flow_kg_s: null,
+      power_MW_el: null,
+    });
+  });
+
+  it('gives the profile in degC within half a thousandth of a kelvin', async () => {
+    const { get, plant } = await app();
+    const profile = unitProfileSchema
+      .strict()
+      .parse((await get('/api/units/north/profile')).json());
+    const kelvin = plant.now('north')!.profile!.stores.cold!;
+    const celsius = profile.stores.cold!;
+    expect(celsius.x_m).toEqual(kelvin.x_m);
+    kelvin.mean_K.forEach((value, i) => {
+      expect(Math.abs(celsius.mean_degC[i]! - (value - 273.15))).toBeLessThanOrEqual(0.000_501);
+    });
+    const open = celsius.readings.find((reading) => reading.verdict === 'open')!;
+    expect(open.value_degC).toBeNull();
+    expect(profile.age_s).toBe(4);
+  });
+
+  it('answers hours at the powers asked, with time and age of the estimate', async () => {
+    const { get, plant } = await app();
+    const answer = await get('/api/units/north/hours?power_MW=1.2,1.8');
+    const hours = unitHoursSchema.strict().parse(answer.json());
+    expect(hours.answers.map((one) => one.power_MW)).toEqual([1.2, 1.8]);
+    expect(hours.time).toBe(plant.time());
+    expect(hours.age_s).toBe(4);
+    expect(hours.answers).toEqual((await plant.hours('north', [1.2, 1.8])).answers);
+  });
+
+  it('gives the history of the 24 h before the newest estimate unless asked otherwise', async () => {
+    const { get, plant } = await app();
+    const history = unitHistorySchema
+      .strict()
+      .parse((await get('/api/units/north/history?points=5')).json());
+    expect(history.to).toBe(plant.time());
+    expect(Date.parse(history.to) - Date.parse(history.from)).toBe(86_400_000);
+    expect(history.rows).toHaveLength(5);
+    expect(Object.keys(history.rows[0]!)).toEqual(['time', ...plant.historySeries()]);
+  });
+
+  it('gives only the series and span asked for', async () => {
+    const { get } = await app();
+    const answer = await get(
+      '/api/units/north/history?from=2026-01-31T02:00:00%2B01:00&to=2026-01-31T04:00:00Z&series=hours_p50&points=3',
+    );
+    const { rows, from } = unitHistorySchema.parse(answer.json());
+    expect(from).toBe('2026-01-31T01:00:00.000Z');
+    expect(Object.keys(rows[0]!)).toEqual(['time', 'hours_p50']);
+  });
+
+  it('gives the history as CSV by format and by Accept, with empty fields for null', async () => {
+    const { get, plant } = await app();
+    const url = '/api/units/north/history?series=state_of_charge&points=100';
+    const byFormat = await get(`${url}&format=csv`);
+    const byAccept = await get(url, { accept: 'text/csv' });
+    expect(byFormat.headers['content-type']).toMatch(/^text\/csv/);
+    expect(byAccept.body).toBe(byFormat.body);
+    const lines = byFormat.body.split('\r\n');
+    expect(lines[0]).toBe('time,state_of_charge');
+    expect(lines).toHaveLength(102); // header, 100 rows, nothing after the last CRLF
+    expect(lines[97]).toMatch(/Z,$/); // the script's 97th row is a gap
+    const rows = plant.history(
+      'north',
+      Date.parse(plant.time()) - 86_400_000,
+      Date.parse(plant.time()),
+      100,
+    );
+    expect(lines[1]).toBe(`${rows[0]!.time},${rows[0]!.state_of_charge}`);
+  });
+
+  it('lists what stands and what happened, and acknowledges with a name', async () => {
+    const { app: server, get, plant } = await app();
+    const { id } = plant.raise({ kind: 'front_spread', subject: 'hot' });
+    const alarms = alarmsSchema.strict().parse((await get('/api/alarms')).json());
+    expect(alarms.standing).toMatchObject([{ id, state: 'unacknowledged', acknowledged_by: null }]);
+    const events = eventsSchema.strict().parse((await get('/api/events?unit=north')).json());
+    expect(events.events).toMatchObject([{ id, transition: 'raised' }]);
+
+    const answer = await server.inject({
+      method: 'POST',
+      url: '/api/alarms/acknowledge',
+      payload: { id, who: ' night shift ' },
+    });
+    expect(acknowledgedSchema.strict().parse(answer.json())).toMatchObject({
+      id,
+      acknowledged_by: 'night shift',
+      standing: { state: 'acknowledged' },
+    });
+    expect(plant.acknowledged).toEqual([{ id, who: 'night shift' }]);
+  });
+
+  it('gives the counters, and as Prometheus metrics with the figures of each unit', async () => {
+    const { get, plant } = await app();
+    plant.raise({ kind: 'front_spread', subject: 'hot' });
+    const { counters } = countersSchema.strict().parse((await get('/api/counters')).json());
+    expect(counters).toMatchObject({ 'mqtt.messages': 1200, http_non_finite_numbers: 0 });
+    const metrics = await get('/metrics');
+    expect(metrics.headers['content-type']).toMatch(/^text\/plain/);
+    for (const line of [
+      '# TYPE rockhour_mqtt_late_messages_total counter',
+      'rockhour_mqtt_late_messages_total{counter="mqtt.late-messages"} 3',
+      'rockhour_state_of_charge_ratio{unit="north"} 0.62',
+      'rockhour_part_ok{part="database"} 1',
+      'rockhour_standing{unit="north",class="alert",state="unacknowledged"} 1',
+    ]) {
+      expect(metrics.body.split('\n')).toContain(line);
+    }
+  });
+
+  it('writes a number that is not finite as null, and counts it', async () => {
+    const { get, plant } = await app();
+    plant.moment = { charged: Number.NaN, mode: 'stand' };
+    const list = (await get('/api/units')).json();
+    expect(list.units[0].state_of_charge).toBeNull();
+    expect((await get('/api/counters')).json().counters.http_non_finite_numbers).toBe(1);
+  });
+
+  it('describes every route in an OpenAPI document', async () => {
+    const { get } = await app();
+    const document = (await get('/api/openapi.json')).json();
+    expect(document.openapi).toBe('3.1.0');
+    expect(Object.keys(document.paths).sort()).toEqual([
+      '/api/alarms',
+      '/api/alarms/acknowledge',
+      '/api/counters',
+      '/api/events',
+      '/api/health',
+      '/api/stream',
+      '/api/units',
+      '/api/units/{unit}',
+      '/api/units/{unit}/history',
+      '/api/units/{unit}/hours',
+      '/api/units/{unit}/profile',
+      '/metrics',
+    ]);
+    const hours = document.paths['/api/units/{unit}/hours'].get;
+    expect(hours.parameters.map((parameter: { name: string }) => parameter.name).sort()).toEqual([
+      'power_MW',
+      'unit',
+    ]);
+    expect(
+      hours.responses['200'].content['application/json'].schema.properties.answers,
+    ).toBeDefined();
+  });
+});
+
+describe('under a path prefix', () => {
+  it.each(['/plant/rock', 'plant/rock/'])(
+    'serves everything below %s and nothing beside it',
+    async (prefix) => {
+      const { get } = await app({ prefix });
+      expect((await get('/plant/rock/api/units/north')).statusCode).toBe(200);
+      expect((await get('/plant/rock/metrics')).statusCode).toBe(200);
+      expect((await get('/plant/rock/')).body).toContain('<title>page</title>');
+      const bare = await get('/plant/rock');
+      expect([bare.statusCode, bare.headers.location]).toEqual([308, '/plant/rock/']);
+      expect((await get('/api/units')).statusCode).toBe(404);
+      const document = (await get('/plant/rock/api/openapi.json')).json();
+      expect(document.servers).toEqual([{ url: '/plant/rock' }]);
+      expect(document.paths['/api/units']).toBeDefined();
+    },
+  );
+});
+
+describe('headers', () => {
+  it('lets the page load nothing from elsewhere and run nothing inline', async () => {
+    const { get } = await app();
+    const page = await get('/');
+    const policy = String(page.headers['content-security-policy']);
+    expect(policy).toContain("default-src 'none'");
+    expect(policy).toContain("script-src 'self'");
+    expect(policy).not.toMatch(/unsafe|https?:|\*/);
+    expect(page.headers['cache-control']).toBe('no-cache');
+    expect((await get('/api/units')).headers['cache-control']).toBe('no-store');
+  });
+});

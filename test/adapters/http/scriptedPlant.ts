@@ -1,0 +1,320 @@
+import type {
+  HealthPart,
+  HistoryPoint,
+  PlantService,
+  ServiceMessage,
+  StandingEvent,
+  UnitNow,
+} from '../../../src/adapters/http/service.js';
+import type { UnitDefinition } from '../../../src/core/definitions.js';
+import type {
+  DispatchAnswer,
+  Estimate,
+  ProfileView,
+  StoreEstimate,
+} from '../../../src/core/estimate.js';
+import type { WatchEvent } from '../../../src/core/watch/event.js';
+import { COLD, HOT, unitOf } from './scriptedDefinitions.js';
+
+const START_MS = Date.UTC(2026, 0, 31, 6);
+
+/** Error function, Abramowitz & Stegun 7.1.26, absolute error below 1.5e-7. */
+function erf(x: number): number {
+  const t = 1 / (1 + 0.3275911 * Math.abs(x));
+  const series =
+    ((((1.061405429 * t - 1.453152027) * t + 1.421413741) * t - 0.284496736) * t + 0.254829592) * t;
+  return Math.sign(x) * (1 - series * Math.exp(-x * x));
+}
+
+/** What the script of a unit says of one moment. */
+interface Moment {
+  charged: number;
+  mode: 'charge' | 'discharge' | 'stand';
+}
+
+/**
+ * A plant that moves by a script instead of by physics: fronts are error functions that travel with
+ * the charge. Everything else of PlantService is kept in memory. `step()` is one scan.
+ */
+export class ScriptedPlant implements PlantService {
+  siteName = 'Test site';
+  readonly version = '0.1.0-test';
+  readonly units: UnitDefinition[];
+  readonly parts: HealthPart[] = [
+    { name: 'journal', ok: true, detail: 'writing' },
+    { name: 'database', ok: true, detail: 'reachable' },
+  ];
+  readonly count: Record<string, number> = { 'mqtt.messages': 1200, 'mqtt.late-messages': 3 };
+  readonly acknowledged: { id: string; who: string }[] = [];
+  /** Age of the newest reading [s], set by the test. */
+  age_s: number | null = 4;
+  stale = false;
+  /** false: no scan has come yet. */
+  started = true;
+  moment: Moment = { charged: 0.62, mode: 'discharge' };
+  scans = 0;
+  failHours: Error | null = null;
+  private readonly standingEvents = new Map<string, StandingEvent>();
+  private readonly past: WatchEvent[] = [];
+  private readonly listeners = new Set<(message: ServiceMessage) => void>();
+
+  constructor(units: UnitDefinition[] = [unitOf('north', 'North unit', [HOT, COLD])]) {
+    this.units = units;
+  }
+
+  get listening(): number {
+    return this.listeners.size;
+  }
+
+  unitIds(): string[] {
+    return this.units.map((unit) => unit.id);
+  }
+
+  /** Source time of the newest scan. */
+  time(scans = this.scans): string {
+    return new Date(START_MS + scans * 30_000).toISOString();
+  }
+
+  step(change = this.moment.mode === 'charge' ? 0.004 : -0.004): void {
+    this.scans += 1;
+    const charged =
+      this.moment.mode === 'stand' ? this.moment.charged : this.moment.charged + change;
+    this.moment = { ...this.moment, charged: Math.min(0.98, Math.max(0.02, charged)) };
+    for (const unit of this.unitIds()) this.say({ kind: 'state', unit });
+  }
+
+  say(message: ServiceMessage): void {
+    for (const listener of this.listeners) listener(message);
+  }
+
+  raise(event: Partial<WatchEvent> & Pick<WatchEvent, 'kind' | 'subject'>): WatchEvent {
+    const unit = event.unit ?? this.units[0]!.id;
+    const full: WatchEvent = {
+      id: `${unit}/${event.kind}/${event.subject}`,
+      unit,
+      class: 'alert',
+      priority: 'medium',
+      transition: 'raised',
+      time: this.time(),
+      value: 1.62,
+      limit: 1.5,
+      message: `The front in ${event.subject} is 1.62 times as wide as a healthy bed would show.`,
+      ...event,
+    };
+    const { transition, ...rest } = full;
+    const before = this.standingEvents.get(full.id);
+    if (transition === 'raised') {
+      this.standingEvents.set(full.id, { ...rest, state: 'unacknowledged', acknowledged_by: null });
+    } else if (before?.state === 'acknowledged') {
+      this.standingEvents.delete(full.id);
+    } else if (before !== undefined) {
+      this.standingEvents.set(full.id, { ...before, state: 'returned_unacknowledged' });
+    }
+    this.past.push(full);
+    this.say({ kind: 'event', unit, event: full });
+    return full;
+  }
+
+  now(id: string): UnitNow | undefined {
+    const unit = this.units.find((candidate) => candidate.id === id);
+    if (unit === undefined) return undefined;
+    const running = this.started && this.moment.mode !== 'stand';
+    return {
+      unit,
+      estimate: this.started ? this.estimate(unit) : null,
+      profile: this.started ? this.profile(unit) : null,
+      dispatch: this.started
+        ? {
+            time: this.time(this.scans - 2),
+            answers: unit.hours_at_W.map((w) => this.answer(w / 1e6)),
+          }
+        : null,
+      age_s: this.started ? this.age_s : null,
+      stale: this.stale,
+      flow_kg_s: this.started ? (running ? 12.4 : 0) : null,
+      power_MW_el: running
+        ? this.moment.mode === 'charge'
+          ? -2.2
+          : 1.85
+        : this.started
+          ? 0
+          : null,
+    };
+  }
+
+  private answer(power_MW: number): DispatchAnswer {
+    const hours = (this.moment.charged * 16) / power_MW;
+    const spread = { p90: hours * 0.96, p50: hours, p10: hours * 1.03 };
+    return {
+      power_MW,
+      hours: spread,
+      energy_MWh_el: {
+        p90: spread.p90 * power_MW,
+        p50: spread.p50 * power_MW,
+        p10: spread.p10 * power_MW,
+      },
+      ends_by: power_MW > 3 ? 'flow' : 'hot_outlet',
+    };
+  }
+
+  async hours(unit: string, powers_MW: readonly number[]) {
+    if (this.failHours !== null) throw this.failHours;
+    if (this.now(unit) === undefined) throw new RangeError(`unit: ${unit}`);
+    return { time: this.time(), answers: powers_MW.map((power) => this.answer(power)) };
+  }
+
+  /** theta along a string: the front stands at `charged` of the length. */
+  private theta(store: UnitDefinition['stores'][number], lead_m: number, x: number): number {
+    const front = this.moment.charged * store.bed.length_m + lead_m;
+    const beyond = 0.5 * (1 + erf((x - front) / (Math.SQRT2 * 0.55)));
+    return store.kind === 'hot' ? 1 - beyond : beyond;
+  }
+
+  profile(unit: UnitDefinition): ProfileView {
+    const stores = unit.stores.map((store) => {
+      const x_m = Array.from({ length: 100 }, (_, i) => ((i + 0.5) / 100) * store.bed.length_m);
+      const span = store.reference_hot_K - store.reference_cold_K;
+      const at = (x: number, lead: number) =>
+        store.reference_cold_K + span * this.theta(store, lead, x);
+      const leads = [0.18, 0, -0.12];
+      const tubes = store.strings.map((string, i) => ({
+        id: string.id,
+        temperature_K: x_m.map((x) => at(x, leads[i]!)),
+        sigma_K: x_m.map(
+          (x) => 2 + Math.abs(at(x - 0.1, leads[i]!) - at(x + 0.1, leads[i]!)) * 0.3,
+        ),
+      }));
+      const readings = store.strings.flatMap((string, i) =>
+        string.thermocouples.map(({ id, position_m }, j) => {
+          const stuck = string.id === 'B' && j === 9;
+          const open = string.id === 'C' && j === 3;
+          const noise = Math.sin(12.9 * (i * 14 + j) + this.scans) * 2;
+          return {
+            id,
+            string: string.id,
+            position_m,
+            value_K: open
+              ? null
+              : stuck
+                ? store.reference_cold_K + span * 0.7
+                : at(position_m, leads[i]!) + noise,
+            verdict: open ? ('open' as const) : stuck ? ('stuck' as const) : null,
+          };
+        }),
+      );
+      return [store.id, { x_m, tubes, mean_K: x_m.map((x) => at(x, 0)), readings }] as const;
+    });
+    return { time: this.time(), unit: unit.id, stores: Object.fromEntries(stores) };
+  }
+
+  private estimate(unit: UnitDefinition): Estimate {
+    return {
+      time: this.time(),
+      unit: unit.id,
+      revision: 0,
+      mode: this.moment.mode,
+      quality: this.stale ? 'stale' : 'good',
+      state_of_charge: this.moment.charged,
+      stores: Object.fromEntries(unit.stores.map((store) => [store.id, this.storeEstimate(store)])),
+    };
+  }
+
+  private storeEstimate(store: UnitDefinition['stores'][number]): StoreEstimate {
+    const position_m = this.moment.charged * store.bed.length_m;
+    const hot = store.kind === 'hot';
+    const rejected = store.strings.flatMap((string) => {
+      if (string.id === 'A') return [];
+      const index = string.id === 'B' ? 9 : 3;
+      const verdict = string.id === 'B' ? ('stuck' as const) : ('open' as const);
+      const { id } = string.thermocouples[index]!;
+      return [{ id, verdict, since: this.time(0), evidence: 'by the script' }];
+    });
+    return {
+      soc: this.moment.charged,
+      soc_sigma: 0.004,
+      stored_MWh_th: this.moment.charged * (hot ? 42 : 21),
+      stored_sigma_MWh_th: hot ? 0.18 : 0.09,
+      fronts: [{ position_m, position_sigma_m: 0.03, width_m: 0.55, width_sigma_m: 0.04 }],
+      fronts_reason: null,
+      energy_position_m: position_m,
+      spread_ratio: hot ? 1.12 : 1.04,
+      heat_transfer_factor: 0.93,
+      heat_transfer_factor_sigma: 0.05,
+      strings: store.strings.map((string, i) => ({
+        id: string.id,
+        flow_factor: [1.06, 1, 0.97][i]!,
+        flow_factor_sigma: 0.012,
+        position_m: position_m + [0.18, 0, -0.12][i]!,
+        width_m: 0.55,
+      })),
+      front_views: store.strings.map((string) => ({
+        id: string.id,
+        position_m: position_m + 0.04,
+        position_sigma_m: 0.05,
+        width_m: 0.57,
+        width_sigma_m: 0.06,
+        seen: true,
+        disagreement: 0.7,
+      })),
+      sensors: { used: 40, rejected },
+      outlet_K: this.moment.mode === 'stand' ? null : hot ? 768.4 : 117.9,
+    };
+  }
+
+  historySeries(): string[] {
+    return ['state_of_charge', 'hours_p90', 'hours_p50', 'hours_p10', 'quality'];
+  }
+
+  history(_unit: string, from_ms: number, to_ms: number, points: number): HistoryPoint[] {
+    const rows = Math.min(points, 300);
+    return Array.from({ length: rows }, (_, i) => {
+      const t = rows === 1 ? to_ms : from_ms + ((to_ms - from_ms) * i) / (rows - 1);
+      const hoursBack = (START_MS + this.scans * 30_000 - t) / 3_600_000;
+      const charged = Math.abs(((((this.moment.charged + hoursBack / 10) % 2) + 2) % 2) - 1);
+      const gap = i % 97 === 96;
+      return {
+        time: new Date(t).toISOString(),
+        state_of_charge: gap ? null : charged,
+        hours_p90: gap ? null : charged * 7.6,
+        hours_p50: gap ? null : charged * 8,
+        hours_p10: gap ? null : charged * 8.3,
+        quality: 'good',
+      };
+    });
+  }
+
+  standing(unit?: string): StandingEvent[] {
+    const all = [...this.standingEvents.values()];
+    return unit === undefined ? all : all.filter((event) => event.unit === unit);
+  }
+
+  events(unit: string | undefined, from_ms: number, to_ms: number, most: number): WatchEvent[] {
+    const within = this.past.filter((event) => {
+      const time = Date.parse(event.time);
+      return time >= from_ms && time <= to_ms && (unit === undefined || event.unit === unit);
+    });
+    return within.slice(-most);
+  }
+
+  acknowledge(id: string, who: string): boolean {
+    const event = this.standingEvents.get(id);
+    if (event === undefined) return false;
+    this.acknowledged.push({ id, who });
+    if (event.state === 'returned_unacknowledged') this.standingEvents.delete(id);
+    else this.standingEvents.set(id, { ...event, state: 'acknowledged', acknowledged_by: who });
+    return true;
+  }
+
+  health(): HealthPart[] {
+    return this.parts;
+  }
+
+  counters(): Record<string, number> {
+    return this.count;
+  }
+
+  subscribe(listener: (message: ServiceMessage) => void): () => void {
+    this.listeners.add(listener);
+    return () => this.listeners.delete(listener);
+  }
+}
