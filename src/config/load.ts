@@ -1,0 +1,44 @@
+import { readFileSync } from 'node:fs';
+import { dirname, resolve } from 'node:path';
+import { ConfigFault } from './faults.js';
+import { parseSite } from './parse.js';
+import type { SiteConfig } from './site.js';
+
+export { ConfigFault, type Fault } from './faults.js';
+export { type Parsed, parseSite } from './parse.js';
+
+/** A site file is text that people write; one that is larger is something else. */
+const MOST_BYTES = 4 * 1024 * 1024;
+
+/**
+ * Reads a site file and gives its frozen configuration.
+ *
+ * @throws ConfigFault with every fault of the file at once, also where it cannot be read
+ */
+export function loadSite(path: string): SiteConfig {
+  const parsed = parseSite(readText(path), dirname(resolve(path)));
+  if (parsed.faults !== undefined) throw new ConfigFault('CONFIG_INVALID', path, parsed.faults);
+  return parsed.site;
+}
+
+function readText(path: string): string {
+  const unreadable = (found: string): ConfigFault =>
+    new ConfigFault('CONFIG_UNREADABLE', path, [
+      { path: '(whole file)', line: null, found, expected: 'a site file in YAML', hint: null },
+    ]);
+  let bytes: Buffer;
+  try {
+    bytes = readFileSync(path);
+  } catch (error) {
+    const { code } = error as NodeJS.ErrnoException;
+    if (code === 'ENOENT') throw unreadable('no such file');
+    if (code === 'EISDIR') throw unreadable('a folder');
+    throw unreadable(`a file that cannot be read (${code ?? 'unknown error'})`);
+  }
+  if (bytes.length > MOST_BYTES) throw unreadable(`a file of ${bytes.length} bytes`);
+  try {
+    return new TextDecoder('utf-8', { fatal: true }).decode(bytes);
+  } catch {
+    throw unreadable('bytes that are not UTF-8 text');
+  }
+}

@@ -1,0 +1,95 @@
+import { LineCounter, parseDocument, type YAMLError } from 'yaml';
+import { crossFaults } from './crossChecks/index.js';
+import { type Fault, pathText } from './faults.js';
+import { deepFreeze } from './freeze.js';
+import { lineOf } from './locate.js';
+import { repair, restsOn } from './repair.js';
+import { resolveSite } from './resolve.js';
+import { type SiteBlock, siteSchema } from './schema/site.js';
+import { readSecrets } from './secrets.js';
+import type { SiteConfig } from './site.js';
+import { type RawFault, structureFaults } from './structure.js';
+
+export type Parsed =
+  | { readonly site: SiteConfig; readonly faults?: never }
+  | { readonly faults: readonly Fault[]; readonly site?: never };
+
+/**
+ * A site file's text becomes a frozen SiteConfig, or every fault of it at once, in the order of
+ * the file. Relative paths in it are taken from `baseFolder`; passwords come from files or from
+ * `environment`. It throws for no text whatever.
+ */
+export function parseSite(
+  text: string,
+  baseFolder: string,
+  environment: Readonly<Record<string, string | undefined>> = process.env,
+): Parsed {
+  const lines = new LineCounter();
+  const document = parseDocument(text, { lineCounter: lines, prettyErrors: false });
+  if (document.errors.length > 0) {
+    return { faults: document.errors.map((error) => yamlFault(error, lines)) };
+  }
+  let data: unknown;
+  try {
+    data = document.toJS();
+  } catch {
+    // Aliases that expand without end are the only way here; the text may hold a secret.
+    return { faults: [wholeFile('aliases (*) that cannot be followed')] };
+  }
+  const located = (raw: readonly RawFault[]): Fault[] =>
+    raw
+      .map((fault) => ({
+        path: pathText(fault.path),
+        line: lineOf(document, lines, fault.path),
+        found: fault.found,
+        expected: fault.expected,
+        hint: fault.hint,
+      }))
+      .sort((a, b) => (a.line ?? 0) - (b.line ?? 0));
+
+  const structural = structureFaults(siteSchema, data);
+  const sound = siteSchema.safeParse(data);
+  if (!sound.success) {
+    const mended = repair(siteSchema, data, structural);
+    if (mended === null) return { faults: located(structural) };
+    const block = siteSchema.parse(mended.data);
+    const concluded = crossFaults(block).filter((f) => !restsOn(f.about, mended.invented));
+    return { faults: located([...structural, ...concluded]) };
+  }
+  const block: SiteBlock = sound.data;
+  const { secrets, faults: secretFaults } = readSecrets(block, baseFolder, environment);
+  const raw = [
+    ...crossFaults(block),
+    ...secretFaults.map((f) => ({ ...f, atKey: false, hint: null })),
+  ];
+  if (raw.length > 0) return { faults: located(raw) };
+  return { site: deepFreeze(resolveSite(block, baseFolder, secrets)) };
+}
+
+function wholeFile(found: string): Fault {
+  return { path: '(whole file)', line: null, found, expected: 'YAML that can be read', hint: null };
+}
+
+/** The parser's own messages may quote the file, so they are put in words without it. */
+const YAML_WORDS: Readonly<Record<string, readonly [found: string, hint: string | null]>> = {
+  DUPLICATE_KEY: ['a key that stands here twice', 'keep one of the two'],
+  TAB_AS_INDENT: ['a tab at the beginning of a line', 'YAML is indented with spaces'],
+  BAD_INDENT: ['a line that is indented wrongly', 'keys of one block begin in the same column'],
+  MISSING_CHAR: ['a missing character', 'a quotation mark, bracket or comma is not closed'],
+  BLOCK_AS_IMPLICIT_KEY: ['two keys on one line', 'each key begins a line'],
+  MULTILINE_IMPLICIT_KEY: ['a line without its key', 'write key: value'],
+  BAD_ALIAS: [
+    'an alias (*) without its anchor',
+    'put a text that begins with * in quotation marks',
+  ],
+  MULTIPLE_DOCS: ['more than one document', 'a site is one document: remove the line ---'],
+};
+
+function yamlFault(error: YAMLError, lines: LineCounter): Fault {
+  const [found, hint] = YAML_WORDS[error.code] ?? [
+    `YAML that cannot be read (${error.code.toLowerCase().replaceAll('_', ' ')})`,
+    null,
+  ];
+  const line = lines.linePos(error.pos[0]).line;
+  return { path: '(whole file)', line, found, expected: 'YAML that can be read', hint };
+}

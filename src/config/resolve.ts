@@ -1,0 +1,94 @@
+import { resolve as resolvePath } from 'node:path';
+import type { UnitDefinition } from '../core/definitions.js';
+import { ZERO_CELSIUS_K } from '../core/units.js';
+import { channelTopic, expandString } from './expand.js';
+import { resolveChannels } from './resolveChannels.js';
+import {
+  resolveEstimator,
+  resolveLimits,
+  resolveMachine,
+  resolveWatch,
+} from './resolveOperation.js';
+import { resolveStore } from './resolveStore.js';
+import type { SiteBlock, UnitBlock } from './schema/site.js';
+import type { Secrets } from './secrets.js';
+import type { ChannelSource, SiteConfig } from './site.js';
+
+/** A sound site block becomes SI units and kelvin; every conversion of the file happens here. */
+export function resolveSite(site: SiteBlock, baseFolder: string, secrets: Secrets): SiteConfig {
+  const { mqtt, influx, store, http } = site;
+  return {
+    name: site.name,
+    units: site.units.map(resolveUnit),
+    sources: site.units.flatMap((unit) => sourcesOf(unit, mqtt.in_prefix)),
+    scan_deadline_s: site.scan_deadline_s,
+    mqtt: {
+      url: mqtt.url ?? null,
+      embedded_host: mqtt.embedded_host,
+      embedded_port: mqtt.embedded_port,
+      client_id: mqtt.client_id,
+      username: mqtt.username ?? null,
+      password: secrets.mqtt,
+      protocol: mqtt.protocol,
+      qos: mqtt.qos,
+      out_prefix: mqtt.out_prefix,
+    },
+    influx:
+      influx === undefined
+        ? null
+        : {
+            url: influx.url,
+            database: influx.database,
+            username: influx.username ?? null,
+            password: secrets.influx,
+            batch_points: influx.batch_points,
+          },
+    store: { ...store, folder: resolvePath(baseFolder, store.folder) },
+    http,
+  };
+}
+
+function resolveUnit(unit: UnitBlock): UnitDefinition {
+  return {
+    id: unit.id,
+    name: unit.name ?? unit.id,
+    scan_period_s: unit.scan_period_s,
+    rated_power_W: unit.rated_power_MW_el * 1e6,
+    rated_hours: unit.rated_hours_h,
+    ambient_K: unit.ambient_degC + ZERO_CELSIUS_K,
+    stores: unit.stores.map(resolveStore),
+    channels: resolveChannels(unit),
+    machine: resolveMachine(unit.machine),
+    limits: resolveLimits(unit.limits),
+    estimator: resolveEstimator(unit),
+    watch: resolveWatch(unit),
+    hours_at_W: (unit.hours_at_MW_el ?? [unit.rated_power_MW_el]).map((power) => power * 1e6),
+    hours_every_s: unit.hours_every_min * 60,
+  };
+}
+
+function sourcesOf(unit: UnitBlock, inPrefix: string): ChannelSource[] {
+  const strings = unit.stores.flatMap((store) =>
+    store.strings.flatMap((string): ChannelSource[] => {
+      const { ids, topics } = expandString(unit.id, store, string, inPrefix);
+      if (string.payload === 'array') {
+        return [{ unit: unit.id, topic: topics[0]!, payload: 'array', channels: ids }];
+      }
+      return ids.map((channel, i) => ({
+        unit: unit.id,
+        topic: topics[i]!,
+        payload: 'value',
+        channels: [channel],
+      }));
+    }),
+  );
+  const others = unit.channels.map(
+    (channel): ChannelSource => ({
+      unit: unit.id,
+      topic: channelTopic(unit, channel, inPrefix),
+      payload: 'value',
+      channels: [channel.id],
+    }),
+  );
+  return [...strings, ...others];
+}

@@ -1,0 +1,64 @@
+import type { UnitDefinition } from '../core/definitions.js';
+
+/** Where the readings of a channel come from. */
+export interface ChannelSource {
+  readonly unit: string;
+  readonly topic: string;
+  /** `value`: one reading a message; `array`: the readings of a whole string, ordered by x. */
+  readonly payload: 'value' | 'array';
+  /** Channel ids in the order of the array; exactly one for `value`. */
+  readonly channels: readonly string[];
+}
+
+export interface MqttConfig {
+  /** null: rockhour starts its own broker on `embedded_host:embedded_port`. */
+  readonly url: string | null;
+  readonly embedded_host: string;
+  readonly embedded_port: number;
+  readonly client_id: string;
+  readonly username: string | null;
+  readonly password: string | null;
+  /** Protocol 4 is MQTT 3.1.1, 5 is MQTT 5. */
+  readonly protocol: 4 | 5;
+  readonly qos: 0 | 1;
+  /** Topics of what rockhour publishes start with this. */
+  readonly out_prefix: string;
+}
+
+export interface InfluxConfig {
+  readonly url: string;
+  readonly database: string;
+  readonly username: string | null;
+  readonly password: string | null;
+  readonly batch_points: number;
+}
+
+export interface StoreConfig {
+  /** Folder of the local database files. */
+  readonly folder: string;
+  readonly keep_readings_days: number;
+  readonly keep_estimates_days: number;
+  /** After this many days only one estimate per `thin_to_s` is kept. */
+  readonly thin_after_days: number;
+  readonly thin_to_s: number;
+  readonly checkpoint_every_s: number;
+}
+
+export interface HttpConfig {
+  readonly host: string;
+  readonly port: number;
+  readonly path_prefix: string;
+}
+
+/** A whole site: what the YAML file becomes once it is found sound. Frozen. */
+export interface SiteConfig {
+  readonly name: string;
+  readonly units: readonly UnitDefinition[];
+  readonly sources: readonly ChannelSource[];
+  /** How long after its nominal end a scan waits for missing readings [s]. */
+  readonly scan_deadline_s: number;
+  readonly mqtt: MqttConfig;
+  readonly influx: InfluxConfig | null;
+  readonly store: StoreConfig;
+  readonly http: HttpConfig;
+}
