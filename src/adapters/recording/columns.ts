@@ -1,6 +1,9 @@
 import type { ChannelDefinition, UnitDefinition } from '../../core/definitions.js';
 import { RockhourError } from '../../errors.js';
 
+/** What the reading of a recording needs to know of a unit. */
+export type RecordedUnit = Pick<UnitDefinition, 'id' | 'channels'>;
+
 /** Which field of a row belongs to which channel. */
 export interface Columns {
   readonly count: number;
@@ -22,7 +25,7 @@ function isFlow(channel: ChannelDefinition): boolean {
  * Channels without which nothing can be estimated: every thermocouple in a bed, the cold-junction
  * channels that these need, and the flow (of each direction that has a meter) or else the power.
  */
-function missingChannels(unit: UnitDefinition, present: ReadonlySet<string>): string[] {
+function missingChannels(unit: RecordedUnit, present: ReadonlySet<string>): string[] {
   const needed = new Set<string>();
   for (const channel of unit.channels) {
     if (channel.role.kind !== 'thermocouple') continue;
@@ -48,7 +51,7 @@ function missingChannels(unit: UnitDefinition, present: ReadonlySet<string>): st
  */
 export function readHeader(
   header: readonly string[],
-  unit: UnitDefinition,
+  unit: RecordedUnit,
   others: ReadonlySet<string>,
   path: string,
 ): Columns {

@@ -9,7 +9,7 @@ export interface HoldState {
 }
 
 /** Nothing heard yet. */
-export function startHold(unit: UnitDefinition): HoldState {
+export function startHold(unit: Pick<UnitDefinition, 'channels'>): HoldState {
   return {
     value: new Float64Array(unit.channels.length).fill(Number.NaN),
     heard_ms: new Float64Array(unit.channels.length).fill(Number.NaN),
@@ -31,7 +31,7 @@ export function startHold(unit: UnitDefinition): HoldState {
  * @throws RangeError where an array has another length than unit.channels
  */
 export function hold(
-  unit: UnitDefinition,
+  unit: Pick<UnitDefinition, 'channels'>,
   state: HoldState,
   time_ms: number,
   values: Float64Array,

@@ -1,0 +1,154 @@
+import type { Command } from 'commander';
+import type { DispatchAnswer, Quality } from '../core/estimate.js';
+import { advance, hoursAt, startUnit, type UnitStep } from '../core/unit.js';
+import { RockhourError } from '../errors.js';
+import { askDaemon } from './daemonAnswer.js';
+import { loadUnit } from './site.js';
+import { table } from './table.js';
+import { parsePoint_ms, parsePowers_W } from './values.js';
+import { tellCounts, walkRecording } from './walk.js';
+
+interface HoursOptions {
+  readonly config?: string;
+  readonly recording?: string;
+  readonly at?: string;
+  readonly url?: string;
+  readonly unit?: string;
+  readonly power: string;
+  readonly json?: boolean;
+}
+
+/** The hours of a unit, with the time and the age of the estimate that they stand on. */
+interface HoursAnswer {
+  readonly unit: string;
+  readonly time: string;
+  readonly age_s: number | null;
+  readonly quality: Quality | null;
+  readonly state_of_charge: number | null;
+  readonly answers: readonly DispatchAnswer[];
+}
+
+async function fromRecording(options: HoursOptions): Promise<HoursAnswer> {
+  const { config, recording } = options;
+  if (config === undefined || recording === undefined) {
+    throw new RockhourError('USAGE', 'hours needs --config and --recording, or --url of a daemon');
+  }
+  const powers_W = parsePowers_W('--power', options.power);
+  const at_ms = options.at === undefined ? null : parsePoint_ms('--at', options.at);
+  const { unit, otherChannels } = loadUnit(config, options.unit);
+  // Asked once, at the end: on the way the unit asks nothing by itself.
+  const quiet = { ...unit, hours_at_W: [] };
+  const state = startUnit(quiet);
+  let last: UnitStep | null = null;
+  let first_ms: number | null = null;
+  const reader = await walkRecording(recording, quiet, otherChannels, (scan) => {
+    first_ms ??= scan.time_ms;
+    if (at_ms !== null && scan.time_ms > at_ms) return false;
+    last = advance(quiet, state, scan, { hours_at_W: [], profile: false });
+    return true;
+  });
+  for (const line of tellCounts(reader)) process.stderr.write(`${line}\n`);
+  // Widened again: the compiler does not see the assignments inside the visit.
+  const step = last as UnitStep | null;
+  if (step === null) {
+    if (first_ms === null) {
+      throw new RockhourError('RECORDING_MALFORMED', `${recording} has a header but no rows`, {
+        advice: 'Hours need at least one scan.',
+      });
+    }
+    const begins = new Date(first_ms).toISOString();
+    throw new RockhourError('USAGE', `--at is ${options.at}, but ${recording} begins at ${begins}`);
+  }
+  const { time, quality, state_of_charge } = step.estimate;
+  return {
+    unit: unit.id,
+    time,
+    age_s: at_ms === null ? 0 : (at_ms - Date.parse(time)) / 1000,
+    quality,
+    state_of_charge,
+    answers: hoursAt(unit, state, powers_W),
+  };
+}
+
+async function onlyUnitOf(url: string): Promise<string> {
+  const { units } = (await askDaemon(url, '/api/units')) as { units: { unit: string }[] };
+  if (units.length === 1 && units[0] !== undefined) return units[0].unit;
+  throw new RockhourError(
+    'UNIT_UNKNOWN',
+    `the daemon has several units and none was named: ${units.map(({ unit }) => unit).join(', ')}`,
+  );
+}
+
+async function fromDaemon(url: string, options: HoursOptions): Promise<HoursAnswer> {
+  const powers_MW = parsePowers_W('--power', options.power).map((power) => power / 1e6);
+  const unit = options.unit ?? (await onlyUnitOf(url));
+  const path = `/api/units/${encodeURIComponent(unit)}`;
+  const hours = (await askDaemon(url, `${path}/hours?power_MW=${powers_MW.join(',')}`)) as Pick<
+    HoursAnswer,
+    'time' | 'age_s' | 'answers'
+  >;
+  const now = (await askDaemon(url, path)) as {
+    estimate: { quality: Quality; state_of_charge: number } | null;
+  };
+  return {
+    unit,
+    time: hours.time,
+    age_s: hours.age_s,
+    quality: now.estimate?.quality ?? null,
+    state_of_charge: now.estimate?.state_of_charge ?? null,
+    answers: hours.answers,
+  };
+}
+
+function text(answer: HoursAnswer): string {
+  const age = answer.age_s === null ? '' : `, ${Math.round(answer.age_s)} s old`;
+  const charge =
+    answer.state_of_charge === null
+      ? ''
+      : `, state of charge ${(answer.state_of_charge * 100).toFixed(1)} %`;
+  const three = ({ p90, p50, p10 }: DispatchAnswer['hours']) =>
+    [p90, p50, p10].map((x) => x.toFixed(2));
+  const rows = answer.answers.map((one) => [
+    one.power_MW,
+    ...three(one.hours),
+    ...three(one.energy_MWh_el),
+    one.ends_by,
+  ]);
+  const header = ['MW', 'h p90', 'h p50', 'h p10', 'MWh_el p90', 'MWh_el p50', 'MWh_el p10'];
+  return [
+    `${answer.unit}: estimate of ${answer.time}${age}, quality ${answer.quality ?? 'unknown'}${charge}`,
+    table([...header, 'ends by'], rows),
+    'p90 is the firm figure: exceeded with 90 % probability.',
+  ].join('\n');
+}
+
+async function hours(options: HoursOptions): Promise<void> {
+  if (
+    options.url !== undefined &&
+    (options.recording ?? options.config ?? options.at) !== undefined
+  ) {
+    throw new RockhourError(
+      'USAGE',
+      '--url asks a daemon; --config, --recording and --at do not go with it',
+    );
+  }
+  const answer =
+    options.url === undefined
+      ? await fromRecording(options)
+      : await fromDaemon(options.url, options);
+  process.stdout.write(`${options.json ? JSON.stringify(answer) : text(answer)}\n`);
+}
+
+export function register(program: Command): void {
+  program
+    .command('hours')
+    .description('hours and MWh_el left at given powers, from a recording or a running daemon')
+    .option('--config <file>', 'configuration of the site (YAML); with --recording')
+    .option('--recording <file>', 'recording after whose last row, or at --at, hours are computed')
+    .option('--at <time>', 'take rows up to this time (ISO 8601 with offset, or seconds)')
+    .option('--url <address>', 'ask a running daemon instead, such as http://127.0.0.1:8080')
+    .option('--unit <id>', 'unit asked for; needed where there are several')
+    .requiredOption('--power <MW>', 'powers, such as 1.2,1.8')
+    .option('--json', 'answer as one line of JSON')
+    .action(hours);
+}

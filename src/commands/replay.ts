@@ -1,0 +1,146 @@
+import { resolve } from 'node:path';
+import type { Command } from 'commander';
+import { JsonLinesWriter } from '../adapters/recording/lines.js';
+import type { UnitDefinition } from '../core/definitions.js';
+import { advance, startUnit } from '../core/unit.js';
+import { RockhourError } from '../errors.js';
+import { replayLine } from './replayLine.js';
+import { loadUnit } from './site.js';
+import { parseDuration_s, parsePowers_W } from './values.js';
+import { tellCounts, walkRecording } from './walk.js';
+
+interface ReplayOptions {
+  readonly config: string;
+  readonly recording: string;
+  readonly out: string;
+  readonly unit?: string;
+  readonly hoursAt?: string;
+  readonly hoursEvery?: string;
+  readonly json?: boolean;
+}
+
+/** Says at which scans which powers are asked for: at the first, then once per interval. */
+function asker(unit: UnitDefinition, options: ReplayOptions) {
+  if (options.hoursAt === undefined && options.hoursEvery === undefined) {
+    return { unit, powersFor: () => [] };
+  }
+  const powers_W =
+    options.hoursAt === undefined ? unit.hours_at_W : parsePowers_W('--hours-at', options.hoursAt);
+  if (powers_W.length === 0) {
+    throw new RockhourError(
+      'USAGE',
+      `unit ${unit.id} has no hours_at, so --hours-every needs --hours-at`,
+    );
+  }
+  const every_ms =
+    1000 *
+    (options.hoursEvery === undefined
+      ? unit.hours_every_s
+      : parseDuration_s('--hours-every', options.hoursEvery));
+  let last = Number.NaN;
+  return {
+    // The command decides alone: the unit's own clock for hours asks nothing.
+    unit: { ...unit, hours_at_W: [] },
+    powersFor: (time_ms: number) => {
+      const interval = Math.floor(time_ms / every_ms);
+      if (interval === last) return [];
+      last = interval;
+      return powers_W;
+    },
+  };
+}
+
+interface Summary {
+  unit: string;
+  rows: number;
+  lines: number;
+  from: string | null;
+  to: string | null;
+  raised: Record<string, number>;
+  qualities: Record<string, number>;
+  seconds: number;
+  notes: string[];
+}
+
+function count(tally: Record<string, number>, key: string): void {
+  tally[key] = (tally[key] ?? 0) + 1;
+}
+
+function words(tally: Record<string, number>): string {
+  return Object.entries(tally)
+    .map(([key, n]) => `${key} ${n}`)
+    .join(', ');
+}
+
+function tell(summary: Summary, out: string): void {
+  const span = summary.from === null ? '' : `, ${summary.from} to ${summary.to}`;
+  const lines = [
+    `${summary.unit}: ${summary.rows} rows read, ${summary.lines} lines written to ${out}${span}, in ${summary.seconds.toFixed(1)} s`,
+    `quality: ${words(summary.qualities) || 'no scan'}`,
+    `raised: ${words(summary.raised) || 'nothing'}`,
+    ...summary.notes,
+  ];
+  process.stderr.write(`${lines.join('\n')}\n`);
+}
+
+async function replay(options: ReplayOptions): Promise<void> {
+  if (options.out !== '-' && resolve(options.out) === resolve(options.recording)) {
+    throw new RockhourError('USAGE', `--out and --recording are the same file, ${options.out}`);
+  }
+  if (options.json && options.out === '-') {
+    throw new RockhourError('USAGE', '--json and --out - would both write to standard output');
+  }
+  const loaded = loadUnit(options.config, options.unit);
+  const { unit, powersFor } = asker(loaded.unit, options);
+  const summary: Summary = {
+    unit: unit.id,
+    rows: 0,
+    lines: 0,
+    from: null,
+    to: null,
+    raised: {},
+    qualities: {},
+    seconds: 0,
+    notes: [],
+  };
+  const started = performance.now();
+  const state = startUnit(unit);
+  const writer = new JsonLinesWriter(options.out);
+  try {
+    const reader = await walkRecording(options.recording, unit, loaded.otherChannels, (scan) => {
+      const step = advance(unit, state, scan, {
+        hours_at_W: powersFor(scan.time_ms),
+        profile: false,
+      });
+      summary.from ??= step.estimate.time;
+      summary.to = step.estimate.time;
+      count(summary.qualities, step.estimate.quality);
+      for (const event of step.events)
+        if (event.transition === 'raised') count(summary.raised, event.kind);
+      return writer.write(replayLine(step));
+    });
+    summary.rows = reader.counts.rows;
+    summary.notes = tellCounts(reader);
+  } finally {
+    // Also after a fault: the lines of the rows before it stay.
+    await writer.close();
+  }
+  summary.lines = writer.lines;
+  summary.seconds = (performance.now() - started) / 1000;
+  if (options.json) process.stdout.write(`${JSON.stringify(summary)}\n`);
+  else tell(summary, options.out === '-' ? 'standard output' : options.out);
+}
+
+export function register(program: Command): void {
+  program
+    .command('replay')
+    .description('run a recording through the estimator: one JSON line per row')
+    .requiredOption('--config <file>', 'configuration of the site (YAML)')
+    .requiredOption('--recording <file>', 'CSV after RFC 4180: a column time and one per channel')
+    .requiredOption('--out <file>', 'JSON Lines to write, - for standard output')
+    .option('--unit <id>', 'unit to run; needed where the site has several')
+    .option('--hours-at <MW>', 'powers for which hours are computed, such as 2,3')
+    .option('--hours-every <span>', 'how often, such as 30min (default: hours_every_s of the unit)')
+    .option('--json', 'summary as one line of JSON on standard output')
+    .action(replay);
+}

@@ -1,0 +1,53 @@
+import { readFileSync } from 'node:fs';
+import { Command, CommanderError } from 'commander';
+import { closingHelp } from './commands/help.js';
+import { register as registerHours } from './commands/hours.js';
+import { register as registerReplay } from './commands/replay.js';
+import { EXIT_CODES, exitCodeOf, explain } from './errors.js';
+
+function fail(thrown: unknown): void {
+  process.stderr.write(`${explain(thrown)}\n`);
+  if (process.env.ROCKHOUR_DEBUG === '1') console.error(thrown);
+  process.exitCode = exitCodeOf(thrown);
+}
+
+function version(): string {
+  // Beside both src and dist.
+  const text = readFileSync(new URL('../package.json', import.meta.url), 'utf8');
+  return (JSON.parse(text) as { version: string }).version;
+}
+
+function createProgram(): Command {
+  const program = new Command('rockhour')
+    .description('Front positions, stored energy and remaining hours of packed-bed thermal stores')
+    .version(version())
+    .addHelpText('after', closingHelp())
+    .showSuggestionAfterError()
+    .exitOverride();
+  for (const register of [registerReplay, registerHours]) register(program);
+  for (const command of program.commands) command.exitOverride();
+  return program;
+}
+
+// A reader that has seen enough, as in `rockhour replay --out - | head`, is no fault.
+process.stdout.on('error', (error: NodeJS.ErrnoException) => {
+  if (error.code === 'EPIPE') process.exit(EXIT_CODES.ok.code);
+  fail(error);
+  process.exit();
+});
+// After these nothing can be relied on: say it and end, so that a supervisor starts afresh.
+for (const event of ['uncaughtException', 'unhandledRejection'] as const) {
+  process.on(event, (thrown: unknown) => {
+    fail(thrown);
+    process.exit(EXIT_CODES.internal.code);
+  });
+}
+
+try {
+  await createProgram().parseAsync();
+} catch (thrown) {
+  // commander has said what is wrong, or has printed the help or the version that was asked for.
+  if (thrown instanceof CommanderError) {
+    process.exitCode = thrown.exitCode === 0 ? EXIT_CODES.ok.code : EXIT_CODES.usage.code;
+  } else fail(thrown);
+}
