@@ -1,0 +1,232 @@
+import { requireNotNegative, requirePositive } from '../misuse.js';
+import { findFronts } from './fronts.js';
+import { bracketFront, steepReadings } from './frontViewBracket.js';
+import { normalDensity, normalQuantile } from './frontViewNormal.js';
+import {
+  type Four,
+  type FrontData,
+  type FrontPrior,
+  type FrontSolution,
+  solveFront,
+  symmetrise,
+} from './frontViewSolve.js';
+
+/** One thermocouple of a string that gave a value this scan. */
+export interface FrontReading {
+  readonly x_m: number;
+  /** NaN: missing; the reading is left out. */
+  readonly temperature_K: number;
+  /** Noise that is new with every scan [K]. */
+  readonly sigma_K: number;
+  /** Error that stays (offset, calibration) [K]; 0 where left out. */
+  readonly lasting_K?: number;
+  /** Uncertainty of the sensor's place [m]; 0 where left out. */
+  readonly place_m?: number;
+}
+
+/** Reference temperatures of the store: at x = 0 once charged, and once discharged. */
+export interface FrontReferences {
+  readonly charged_K: number;
+  readonly discharged_K: number;
+}
+
+export const FRONT_VIEW_REASONS = [
+  'too_few_readings',
+  'uniform',
+  'no_half_crossing',
+  'several_fronts',
+  'reversed',
+  'outside_sensors',
+  'not_settled',
+  'jump',
+] as const;
+export type FrontViewReason = (typeof FRONT_VIEW_REASONS)[number];
+
+export interface FrontFit {
+  readonly seen: true;
+  /** theta = 0.5 of the store's references on the fitted shape [m]. */
+  readonly position_m: number;
+  /** One sigma of the fitted erf front [m]; null where fewer than two readings stand in it. */
+  readonly width_m: number | null;
+  readonly hot_plateau_K: number;
+  readonly cold_plateau_K: number;
+  /**
+   * Covariance of (position, width, hot plateau, cold plateau), 4 x 4 row-major, symmetric; zeros
+   * for a width that is null.
+   */
+  readonly covariance: Float64Array;
+  /** The part of it that is new with every scan; the rest stays while the front stays. */
+  readonly white: Float64Array;
+  /** Sum of squared normalised residuals over degrees of freedom; near 1 for an erf front. */
+  readonly misfit: number;
+}
+
+export interface NoFrontFit {
+  readonly seen: false;
+  readonly reason: FrontViewReason;
+}
+
+/** Sigma of the prior on each plateau, as a share of the range between the references. */
+const PLATEAU_PRIOR = 0.1;
+/** Below this share of the fitted step from a plateau, one half of the references is no crossing. */
+const NEAR_PLATEAU = 0.02;
+
+/**
+ * Fits the front of one string: T(x) = A + (B - A) Phi((x - p)/w), A the plateau at the charge
+ * inlet, by weighted least squares (`solveFront`). Independent of the bed model.
+ *
+ * Position: where the fitted curve passes the middle of the references, x50 = p + w u50 with
+ * Phi(u50) = (T50 - A)/(B - A); inside the readings only. Width: w. Priors, weak on purpose: each
+ * plateau at its reference with a tenth of the range, ln w over everything from a quarter of the
+ * spacing to half the readings' reach as plus and minus one sigma. They decide only what the
+ * readings leave open, such as a plateau outside the string. Where the residuals are larger than
+ * their sigmas (the front is no erf) the covariance grows by chi squared over its degrees of freedom
+ * (Birge 1932). A front with fewer than two readings in its steep part has no width, and its
+ * position is that of `bracketFront`.
+ *
+ * @param readings any order; missing ones as NaN
+ * @param references charged and discharged temperature [K]
+ * @returns the fit, or why there is none
+ * @throws RangeError for equal references, or a sigma that is not positive
+ */
+export function fitFront(
+  readings: readonly FrontReading[],
+  references: FrontReferences,
+): FrontFit | NoFrontFit {
+  const { charged_K, discharged_K } = references;
+  const range = Math.abs(charged_K - discharged_K);
+  requirePositive('range between charged_K and discharged_K', range);
+  const sorted = readings
+    .filter((reading) => Number.isFinite(reading.temperature_K))
+    .sort((a, b) => a.x_m - b.x_m);
+  if (sorted.length < 3) return none('too_few_readings');
+  const data = columns(sorted);
+  const merged = mergePlaces(data);
+  if (merged.x.length < 3) return none('too_few_readings');
+
+  const found = findFronts(
+    merged.x,
+    merged.T,
+    Math.max(charged_K, discharged_K),
+    Math.min(charged_K, discharged_K),
+  );
+  if (found.reason !== null)
+    return none(found.reason === 'uniform' ? 'uniform' : 'no_half_crossing');
+  const front = found.fronts[0]!;
+  if (found.fronts.length > 1) return none('several_fronts');
+  if (front.slope_K_m > 0 !== discharged_K > charged_K) return none('reversed');
+
+  const reach = merged.x[merged.x.length - 1]! - merged.x[0]!;
+  const narrow = (0.25 * reach) / (merged.x.length - 1);
+  const wide = 0.5 * reach;
+  const prior: FrontPrior = {
+    charged_K,
+    discharged_K,
+    plateauSigma_K: PLATEAU_PRIOR * range,
+    logWidth: 0.5 * Math.log(narrow * wide),
+    logWidthSigma: 0.5 * Math.log(wide / narrow),
+  };
+  const start: Four = [
+    front.position_m,
+    Math.log(Math.min(wide, Math.max(narrow, front.width_m ?? narrow))),
+    charged_K,
+    discharged_K,
+  ];
+  const solution = solveFront(data, prior, start);
+  if (solution !== null && steepReadings(data, solution.parameters) >= 2)
+    return publish(solution, data, references);
+  return bracketFront(data, prior, front.position_m) ?? none('not_settled');
+}
+
+function none(reason: FrontViewReason): NoFrontFit {
+  return { seen: false, reason };
+}
+
+function columns(readings: readonly FrontReading[]): FrontData {
+  const take = (value: (reading: FrontReading) => number) => Float64Array.from(readings, value);
+  return {
+    x_m: take((r) => {
+      if (!Number.isFinite(r.x_m)) throw new RangeError(`x_m must be finite, got ${r.x_m}`);
+      return r.x_m;
+    }),
+    temperature_K: take((r) => r.temperature_K),
+    white_K: take((r) => requirePositive('sigma_K', r.sigma_K)),
+    lasting_K: take((r) => requireNotNegative('lasting_K', r.lasting_K ?? 0)),
+    place_m: take((r) => requireNotNegative('place_m', r.place_m ?? 0)),
+  };
+}
+
+/** Sensors at one place count as their mean where a profile is needed. */
+function mergePlaces(data: FrontData): { x: Float64Array; T: Float64Array } {
+  const x: number[] = [];
+  const T: number[] = [];
+  let count = 0;
+  for (let i = 0; i < data.x_m.length; i++) {
+    const k = x.length - 1;
+    if (k >= 0 && data.x_m[i] === x[k]) {
+      count++;
+      T[k]! += (data.temperature_K[i]! - T[k]!) / count;
+    } else {
+      x.push(data.x_m[i]!);
+      T.push(data.temperature_K[i]!);
+      count = 1;
+    }
+  }
+  return { x: Float64Array.from(x), T: Float64Array.from(T) };
+}
+
+/** From the shape's parameters to what is published, with the covariance carried along. */
+function publish(
+  solution: FrontSolution,
+  data: FrontData,
+  { charged_K, discharged_K }: FrontReferences,
+): FrontFit | NoFrontFit {
+  const [p, logW, A, B] = solution.parameters;
+  const w = Math.exp(logW);
+  const step = B - A;
+  const share = (0.5 * (charged_K + discharged_K) - A) / step;
+  if (!(share > NEAR_PLATEAU && share < 1 - NEAR_PLATEAU)) return none('no_half_crossing');
+  const u = normalQuantile(share);
+  const position = p + w * u;
+  const last = data.x_m.length - 1;
+  if (!(position >= data.x_m[0]! && position <= data.x_m[last]!)) return none('outside_sensors');
+
+  // d share/dA = -(1 - share)/step, d share/dB = -share/step, du/dshare = 1/density(u).
+  const perShare = w / (step * normalDensity(u));
+  const inletIsHot = charged_K > discharged_K;
+  const jacobian = Float64Array.of(
+    ...[1, w * u, -(1 - share) * perShare, -share * perShare],
+    ...[0, w, 0, 0],
+    ...(inletIsHot ? [0, 0, 1, 0] : [0, 0, 0, 1]),
+    ...(inletIsHot ? [0, 0, 0, 1] : [0, 0, 1, 0]),
+  );
+  const inflation = Math.max(1, solution.misfit);
+  return {
+    seen: true,
+    position_m: position,
+    width_m: w,
+    hot_plateau_K: inletIsHot ? A : B,
+    cold_plateau_K: inletIsHot ? B : A,
+    covariance: carry(jacobian, solution.covariance, inflation),
+    white: carry(jacobian, solution.white, 1),
+    misfit: solution.misfit,
+  };
+}
+
+/** factor M C M' for 4 x 4 row-major matrices, exactly symmetric. */
+function carry(m: Float64Array, c: Float64Array, factor: number): Float64Array {
+  const out = new Float64Array(16);
+  for (let a = 0; a < 4; a++) {
+    for (let b = 0; b < 4; b++) {
+      let sum = 0;
+      for (let k = 0; k < 4; k++) {
+        const left = m[4 * a + k]!;
+        if (left === 0) continue;
+        for (let l = 0; l < 4; l++) sum += left * c[4 * k + l]! * m[4 * b + l]!;
+      }
+      out[4 * a + b] = factor * sum;
+    }
+  }
+  symmetrise(out);
+  return out;
+}
