@@ -1,0 +1,90 @@
+import type { TruthSolid } from './solids.js';
+
+/** A plant as a plain literal, so that nothing here reads a configuration. SI units, kelvin. */
+export interface StoreGeometry {
+  readonly id: string;
+  readonly kind: 'hot' | 'cold';
+  readonly length_m: number;
+  readonly diameter_m: number;
+  readonly particle_diameter_m: number;
+  readonly void_fraction: number;
+  /** Name in solids.ts, or a solid of the caller's own. */
+  readonly solid: string | TruthSolid;
+  readonly fluid: 'argon' | 'air' | 'salt';
+  readonly pressure_Pa: number;
+  readonly reference_hot_K: number;
+  readonly reference_cold_K: number;
+  readonly wall_loss_W_m2K: number;
+  readonly end_loss_W_m2K: readonly [number, number];
+  readonly end_capacity_J_K: readonly [number, number];
+  readonly strings: readonly {
+    readonly id: string;
+    readonly radius_m: number;
+    readonly area_share: number;
+    readonly thermocouples: readonly {
+      readonly id: string;
+      readonly position_m: number;
+      readonly group: string | null;
+    }[];
+  }[];
+}
+
+export interface GasCycleGeometry {
+  readonly kind: 'gas_cycle';
+  readonly high_pressure_Pa: number;
+  readonly low_pressure_Pa: number;
+  readonly compressor_polytropic_efficiency: number;
+  readonly expander_polytropic_efficiency: number;
+  readonly loop_pressure_loss: number;
+  readonly cooler_approach_K: number;
+  readonly motor_efficiency: number;
+  readonly generator_efficiency: number;
+  readonly auxiliary_running_W: number;
+  readonly auxiliary_standing_W: number;
+}
+
+/** A heater and an engine at a single hot store. */
+export interface HeaterGeometry {
+  readonly kind: 'heater';
+  readonly outlet_K: readonly number[];
+  readonly efficiency: readonly number[];
+  readonly return_K: number;
+  readonly charge_inlet_K: number;
+  readonly charge_efficiency: number;
+  readonly auxiliary_running_W: number;
+  readonly auxiliary_standing_W: number;
+}
+
+/** What a channel other than a thermocouple in the bed measures. */
+export type ChannelMeasure =
+  | { readonly measures: 'flow' }
+  | { readonly measures: 'power' }
+  | { readonly measures: 'mode' }
+  | { readonly measures: 'ambient_temperature' }
+  | { readonly measures: 'auxiliary_power' }
+  | { readonly measures: 'gas_temperature'; readonly store: string; readonly end: 0 | 1 }
+  | { readonly measures: 'pressure'; readonly store: string }
+  | { readonly measures: 'pressure_drop'; readonly store: string };
+
+/** Raw unit of a channel in a recording: raw = SI * scale + offset. */
+export interface RawUnit {
+  readonly scale: number;
+  readonly offset: number;
+}
+
+export interface PlantGeometry {
+  readonly id: string;
+  readonly scan_period_s: number;
+  readonly rated_power_W: number;
+  readonly rated_flow_kg_s: number;
+  readonly flow_max_kg_s: number;
+  readonly hot_outlet_min_K: number | null;
+  readonly cold_outlet_max_K: number | null;
+  readonly charge_hot_outlet_max_K: number | null;
+  readonly charge_cold_outlet_min_K: number | null;
+  readonly stores: readonly StoreGeometry[];
+  readonly machine: GasCycleGeometry | HeaterGeometry;
+  readonly channels: readonly ({ readonly id: string } & ChannelMeasure)[];
+  /** Raw units by channel id; a channel without one is recorded in SI units and kelvin. */
+  readonly raw_units: Readonly<Record<string, RawUnit>>;
+}
