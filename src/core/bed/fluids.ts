@@ -217,8 +217,8 @@ export function fluidByName(name: string): Fluid {
  * derivative of the enthalpy. A liquid is returned as it is. A gas cycle takes the ideal gas of
  * `fluidByName`: its polytropic relation is that of an ideal gas.
  *
- * Good to 0.5 % of cp where the density is within 5 % of the ideal gas (at 10.5 bar: above
- * -100 degC); nearer to the dew point it still halves the error.
+ * Good to 0.5 % of cp and 0.2 % of density where the density is within 5 % of the ideal gas's (at
+ * 10.5 bar: above -100 degC); nearer to the dew point it still halves the error.
  *
  * @param pressure_Pa above 0
  * @throws RangeError for an unknown name or an impossible pressure
