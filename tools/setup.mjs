@@ -1,6 +1,6 @@
 import './node-version.mjs';
 import { spawnSync } from 'node:child_process';
-import { existsSync, mkdtempSync, readFileSync } from 'node:fs';
+import { existsSync, mkdtempSync, readFileSync, rmSync } from 'node:fs';
 import { tmpdir } from 'node:os';
 import { dirname, join } from 'node:path';
 import { fileURLToPath } from 'node:url';
@@ -72,7 +72,8 @@ function reason(output) {
 }
 
 async function npm(args, what) {
-  const log = join(mkdtempSync(join(tmpdir(), 'rockhour-setup-')), 'npm.log');
+  const folder = mkdtempSync(join(tmpdir(), 'rockhour-setup-'));
+  const log = join(folder, 'npm.log');
   console.error(`Set-up: ${what} ...`);
   const started = Date.now();
   const beat = setInterval(() => {
@@ -84,7 +85,10 @@ async function npm(args, what) {
     const code = self
       ? await run(process.execPath, [self, ...args], { log, env: headers() })
       : await run('npm', args, { log, env: headers() });
-    if (code === 0) return;
+    if (code === 0) {
+      rmSync(folder, { recursive: true, force: true });
+      return;
+    }
   } catch (error) {
     console.error(
       `Set-up failed: npm cannot be started (${error.code}). Install npm and try again.`,
@@ -101,7 +105,10 @@ async function npm(args, what) {
 /** Installs what package-lock.json names where it is not there yet, and builds where needed. */
 export async function setUp({ build }) {
   if (missingPackage() !== null) {
-    await npm(['ci', '--no-audit', '--no-fund'], 'installing packages (a minute or two, once)');
+    // Two short retries: without a network the answer comes in half a minute instead of two.
+    const patience = ['--fetch-retry-mintimeout=3000', '--fetch-retry-maxtimeout=10000'];
+    const args = ['ci', '--no-audit', '--no-fund', ...patience];
+    await npm(args, 'installing packages (a minute or two, once)');
   }
   if (!sqliteLoads()) {
     await npm(['rebuild', 'better-sqlite3'], 'compiling better-sqlite3 for this Node');
