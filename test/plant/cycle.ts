@@ -31,10 +31,10 @@ function after(T: number, ratio: number, exponent: number): number {
 
 /**
  * Closed argon cycle between two stores. T rises by ratio^(R/(cp eta)) over a compressor and falls
- * by ratio^(R eta/cp) over an expander; half of the loop's pressure loss lies on each side, so the
- * compressor works over p_high (1 + l/2)/(p_low (1 - l/2)) and the expander gets
- * p_high (1 - l/2)/(p_low (1 + l/2)). Coolers bring gas down to ambient + approach: while charging
- * between hot store and expander, while discharging behind compressor and expander.
+ * by ratio^(R eta/cp) over an expander. The two pressures are those of the compressor; half of the
+ * loop's loss lies on each level, so that the expander has their ratio times (1 - loss/2)^2.
+ * Coolers bring gas down to ambient + approach: while charging before each machine, while
+ * discharging behind each.
  */
 export class GasCycle {
   constructor(
@@ -58,8 +58,8 @@ export class GasCycle {
     const etaC = machine.compressor_polytropic_efficiency + draw.compressor_points;
     const etaE = machine.expander_polytropic_efficiency + draw.expander_points;
     const nominal = machine.high_pressure_Pa / machine.low_pressure_Pa;
-    const up = (nominal * (1 + loss / 2)) / (1 - loss / 2);
-    const down = (nominal * (1 - loss / 2)) / (1 + loss / 2);
+    const up = nominal;
+    const down = nominal * (1 - loss / 2) ** 2;
     const cooled = (T: number) => Math.min(T, ambient_K + machine.cooler_approach_K);
     const pipe = (T: number) => {
       if (draw.pipe_loss_W_K === 0) return T;
@@ -68,10 +68,11 @@ export class GasCycle {
     const hotGas = pipe(hotOutlet_K);
     const coldGas = pipe(coldOutlet_K);
     if (charging) {
-      const compressed = after(coldGas, up, EXPONENT / etaC);
+      const beforeCompressor = cooled(coldGas);
+      const compressed = after(beforeCompressor, up, EXPONENT / etaC);
       const beforeExpander = cooled(hotGas);
       const expanded = after(beforeExpander, down, -EXPONENT * etaE);
-      const work = ARGON_CP * (compressed - coldGas - (beforeExpander - expanded));
+      const work = ARGON_CP * (compressed - beforeCompressor - (beforeExpander - expanded));
       return {
         hotInlet_K: pipe(compressed),
         coldInlet_K: pipe(expanded),

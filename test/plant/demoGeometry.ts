@@ -8,21 +8,29 @@ const MW: RawUnit = { scale: 1e-6, offset: 0 };
 const KPA: RawUnit = { scale: 1e-3, offset: 0 };
 const BAR: RawUnit = { scale: 1e-5, offset: 0 };
 
-const STRINGS = ['inner', 'middle', 'outer'];
-const COUNT = 14;
-
-function strings(store: string, length_m: number, radius_m: number): StoreGeometry['strings'] {
-  return STRINGS.map((id, s) => ({
-    id,
-    // Centroid radii of three tubes of equal area.
-    radius_m: radius_m * Math.sqrt((s + 0.5) / STRINGS.length),
-    area_share: 1 / STRINGS.length,
-    thermocouples: Array.from({ length: COUNT }, (_, i) => ({
-      id: `${store}_${id}_${String(i + 1).padStart(2, '0')}`,
-      position_m: ((i + 0.5) * length_m) / COUNT,
-      group: `${store}/${id}`,
-    })),
-  }));
+/** Strings at given radii, each standing for the ring between the mid-radii to its neighbours. */
+export function stringsOf(
+  store: string,
+  radius_m: number,
+  places: readonly { readonly id: string; readonly radius_m: number; readonly group: string }[],
+  positions_m: readonly number[],
+): StoreGeometry['strings'] {
+  return places.map((place, s) => {
+    const below = places[s - 1];
+    const above = places[s + 1];
+    const inner = below ? (below.radius_m + place.radius_m) / 2 : 0;
+    const outer = above ? (above.radius_m + place.radius_m) / 2 : radius_m;
+    return {
+      id: place.id,
+      radius_m: place.radius_m,
+      area_share: (outer * outer - inner * inner) / (radius_m * radius_m),
+      thermocouples: positions_m.map((position_m, i) => ({
+        id: `${store}_${place.id}_${String(i + 1).padStart(2, '0')}`,
+        position_m,
+        group: place.group,
+      })),
+    };
+  });
 }
 
 const hot: StoreGeometry = {
@@ -31,41 +39,65 @@ const hot: StoreGeometry = {
   length_m: 8,
   diameter_m: 6,
   particle_diameter_m: 0.02,
-  void_fraction: 0.42,
+  void_fraction: 0.4,
   solid: 'granite',
   fluid: 'argon',
   pressure_Pa: 7.9e5,
-  reference_hot_K: 480 + ZERO_K,
-  reference_cold_K: 30 + ZERO_K,
-  wall_loss_W_m2K: 0.35,
-  end_loss_W_m2K: [0.5, 0.5],
-  end_capacity_J_K: [3e6, 3e6],
-  strings: strings('hot', 8, 3),
+  reference_hot_K: 460 + ZERO_K,
+  reference_cold_K: 25 + ZERO_K,
+  wall_loss_W_m2K: 0.3,
+  end_loss_W_m2K: [0.35, 0.3],
+  end_capacity_J_K: [9e5, 9e5],
+  strings: stringsOf(
+    'hot',
+    3,
+    [
+      { id: 'axis', radius_m: 0.5, group: 'card_h1' },
+      { id: 'middle', radius_m: 1.6, group: 'card_h2' },
+      { id: 'rim', radius_m: 2.6, group: 'card_h3' },
+    ],
+    [0.4, 0.95, 1.5, 2.05, 2.6, 3.15, 3.7, 4.25, 4.8, 5.35, 5.9, 6.45, 7.0, 7.55],
+  ),
 };
 
 const cold: StoreGeometry = {
-  ...hot,
   id: 'cold',
   kind: 'cold',
+  length_m: 7.6,
+  diameter_m: 7.4,
+  particle_diameter_m: 0.02,
+  void_fraction: 0.4,
   solid: 'basalt',
+  fluid: 'argon',
   pressure_Pa: 1.04e5,
-  length_m: 9,
-  diameter_m: 6.5,
-  reference_hot_K: 30 + ZERO_K,
-  reference_cold_K: -125 + ZERO_K,
-  strings: strings('cold', 9, 3.25),
+  reference_hot_K: 25 + ZERO_K,
+  reference_cold_K: -129 + ZERO_K,
+  wall_loss_W_m2K: 0.25,
+  end_loss_W_m2K: [0.25, 0.25],
+  end_capacity_J_K: [1.2e6, 1.2e6],
+  strings: stringsOf(
+    'cold',
+    3.7,
+    [
+      { id: 'axis', radius_m: 0.6, group: 'card_c1' },
+      { id: 'middle', radius_m: 2.0, group: 'card_c2' },
+      { id: 'rim', radius_m: 3.2, group: 'card_c3' },
+    ],
+    [0.36, 0.89, 1.42, 1.95, 2.48, 3.01, 3.54, 4.07, 4.6, 5.13, 5.66, 6.19, 6.72, 7.25],
+  ),
 };
 
 export const DEMO_GEOMETRY: PlantGeometry = {
-  id: 'demo',
-  scan_period_s: 60,
-  rated_power_W: 1.6e6,
-  rated_flow_kg_s: 20,
-  flow_max_kg_s: 25,
-  hot_outlet_min_K: 420 + ZERO_K,
-  cold_outlet_max_K: -80 + ZERO_K,
-  charge_hot_outlet_max_K: 80 + ZERO_K,
-  charge_cold_outlet_min_K: 0 + ZERO_K,
+  id: 'vellmoor',
+  scan_period_s: 30,
+  rated_power_W: 1.8e6,
+  /** About the flow at rated power with full stores. */
+  rated_flow_kg_s: 22,
+  flow_max_kg_s: 30,
+  hot_outlet_min_K: 340 + ZERO_K,
+  cold_outlet_max_K: -70 + ZERO_K,
+  charge_hot_outlet_max_K: 120 + ZERO_K,
+  charge_cold_outlet_min_K: -20 + ZERO_K,
   stores: [hot, cold],
   machine: {
     kind: 'gas_cycle',
@@ -73,26 +105,26 @@ export const DEMO_GEOMETRY: PlantGeometry = {
     low_pressure_Pa: 1.04e5,
     compressor_polytropic_efficiency: 0.9,
     expander_polytropic_efficiency: 0.91,
-    loop_pressure_loss: 0.03,
+    loop_pressure_loss: 0.04,
     cooler_approach_K: 15,
-    motor_efficiency: 0.97,
-    generator_efficiency: 0.97,
+    motor_efficiency: 0.96,
+    generator_efficiency: 0.96,
     auxiliary_running_W: 40e3,
-    auxiliary_standing_W: 8e3,
+    auxiliary_standing_W: 6e3,
   },
   channels: [
     { id: 'flow', measures: 'flow' },
     { id: 'mode', measures: 'mode' },
     { id: 'power', measures: 'power' },
     { id: 'ambient', measures: 'ambient_temperature' },
-    { id: 'hot_gas_in', measures: 'gas_temperature', store: 'hot', end: 0 },
-    { id: 'hot_gas_out', measures: 'gas_temperature', store: 'hot', end: 1 },
-    { id: 'cold_gas_in', measures: 'gas_temperature', store: 'cold', end: 0 },
-    { id: 'cold_gas_out', measures: 'gas_temperature', store: 'cold', end: 1 },
-    { id: 'hot_dp', measures: 'pressure_drop', store: 'hot' },
-    { id: 'cold_dp', measures: 'pressure_drop', store: 'cold' },
+    { id: 'hot_gas_top', measures: 'gas_temperature', store: 'hot', end: 0 },
+    { id: 'hot_gas_bottom', measures: 'gas_temperature', store: 'hot', end: 1 },
+    { id: 'cold_gas_bottom', measures: 'gas_temperature', store: 'cold', end: 0 },
+    { id: 'cold_gas_top', measures: 'gas_temperature', store: 'cold', end: 1 },
     { id: 'hot_pressure', measures: 'pressure', store: 'hot' },
     { id: 'cold_pressure', measures: 'pressure', store: 'cold' },
+    { id: 'hot_drop', measures: 'pressure_drop', store: 'hot' },
+    { id: 'cold_drop', measures: 'pressure_drop', store: 'cold' },
   ],
   raw_units: {
     ...Object.fromEntries(
@@ -102,12 +134,12 @@ export const DEMO_GEOMETRY: PlantGeometry = {
     ),
     power: MW,
     ambient: DEG_C,
-    hot_gas_in: DEG_C,
-    hot_gas_out: DEG_C,
-    cold_gas_in: DEG_C,
-    cold_gas_out: DEG_C,
-    hot_dp: KPA,
-    cold_dp: KPA,
+    hot_gas_top: DEG_C,
+    hot_gas_bottom: DEG_C,
+    cold_gas_bottom: DEG_C,
+    cold_gas_top: DEG_C,
+    hot_drop: KPA,
+    cold_drop: KPA,
     hot_pressure: BAR,
     cold_pressure: BAR,
   },

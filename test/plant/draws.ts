@@ -1,6 +1,7 @@
 import type { MachineDraw } from './cycle.js';
 import type { PlantGeometry, StoreGeometry } from './geometry.js';
 import { RandomStream } from './random.js';
+import { layOutRings, type RingLayout } from './tubes.js';
 
 /** Which parts of the plant are drawn at random. */
 export interface DrawOptions {
@@ -17,8 +18,10 @@ export interface StoreDraw {
   readonly heat_transfer_factor: number;
   readonly void_fraction: number;
   readonly conductivity_factor: number;
+  readonly stirring_factor: number;
   readonly loss_factor: number;
-  /** Share of flow over share of area, one per ring, mean 1. */
+  readonly layout: RingLayout;
+  /** Share of flow over share of area, one per ring; the area-weighted mean is 1. */
   readonly ring_flow: readonly number[];
 }
 
@@ -61,17 +64,12 @@ export interface PlantDraw {
 }
 
 /** Draws are bounded at two standard deviations: the bounds are those stated beside each. */
-export function drawPlant(
-  geometry: PlantGeometry,
-  seed: number,
-  rings: number,
-  options: DrawOptions,
-): PlantDraw {
+export function drawPlant(geometry: PlantGeometry, seed: number, options: DrawOptions): PlantDraw {
   const stores: Record<string, StoreDraw> = {};
   const thermocouples: Record<string, ThermocoupleDraw> = {};
   const groups: Record<string, GroupDraw> = {};
   for (const store of geometry.stores) {
-    stores[store.id] = drawStore(store, seed, rings, options.physics === 'random');
+    stores[store.id] = drawStore(store, seed, options.physics === 'random');
     for (const string of store.strings) {
       for (const t of string.thermocouples) {
         thermocouples[t.id] = drawThermocouple(
@@ -117,28 +115,36 @@ export function drawPlant(
   };
 }
 
-function drawStore(store: StoreGeometry, seed: number, rings: number, random: boolean): StoreDraw {
+function drawStore(store: StoreGeometry, seed: number, random: boolean): StoreDraw {
+  const layout = layOutRings(store);
+  const { shares } = layout;
   if (!random) {
     return {
       heat_capacity_factor: 1,
       heat_transfer_factor: 1,
       void_fraction: store.void_fraction,
       conductivity_factor: 1,
+      stirring_factor: 1,
       loss_factor: 1,
-      ring_flow: new Array<number>(rings).fill(1),
+      layout,
+      ring_flow: shares.map(() => 1),
     };
   }
   const r = new RandomStream(seed, `store ${store.id}`);
   // Rings differ by +/-3 %; the looser packing at the wall lets up to 5 % more through the last.
-  const flow = Array.from({ length: rings }, () => 1 + r.boundedNormal(0.015));
-  flow[rings - 1] = flow[rings - 1]! + r.uniform(0, 0.05);
-  const mean = flow.reduce((a, b) => a + b, 0) / rings;
+  const last = shares.length - 1;
+  const flow = shares.map(
+    (_, i) => 1 + r.boundedNormal(0.015) + (i === last ? r.uniform(0, 0.05) : 0),
+  );
+  const mean = flow.reduce((sum, f, i) => sum + f * shares[i]!, 0);
   return {
     heat_capacity_factor: 1 + r.boundedNormal(0.015), // +/-3 %
     heat_transfer_factor: Math.exp(r.boundedNormal(0.2)), // a factor of 1.5 either way
     void_fraction: store.void_fraction + r.boundedNormal(0.006), // +/-0.012
     conductivity_factor: Math.exp(r.boundedNormal(0.2)),
+    stirring_factor: Math.exp(r.boundedNormal(0.15)),
     loss_factor: Math.exp(r.boundedNormal(0.2)),
+    layout,
     ring_flow: flow.map((f) => f / mean),
   };
 }

@@ -72,24 +72,29 @@ export class ThermocoupleArray {
 }
 
 function placesOf(store: StoreGeometry, bed: Bed, draw: PlantDraw): Place[] {
-  const { rings, cells } = bed.p;
-  const radius = store.diameter_m / 2;
+  const { cells } = bed.p;
+  const { rings, ringMiddle_m } = bed.c;
   return store.strings.flatMap((string) => {
-    // Ring with the centroid radius sqrt((r+1/2)/R) R0: position among the rings, straight between them.
-    const at = (string.radius_m / radius) ** 2 * rings - 0.5;
-    const [ring, across] = between(at, rings);
+    // Between the radii that halve each ring's area; nearer the axis or the wall the ring itself.
+    let ring = 0;
+    while (ring < rings - 2 && string.radius_m > ringMiddle_m[ring + 1]!) ring++;
+    const outer = Math.min(ring + 1, rings - 1);
+    const span = ringMiddle_m[outer]! - ringMiddle_m[ring]!;
+    const across =
+      span > 0 ? Math.min(Math.max((string.radius_m - ringMiddle_m[ring]!) / span, 0), 1) : 0;
     return string.thermocouples.map((t): Place => {
       const own = draw.thermocouples[t.id]!;
-      const x = (t.position_m + own.position_error_m) / bed.cellLength_m - 0.5;
-      const [cell, along] = between(x, cells);
-      const inner = ring * cells + cell;
-      const outer = (rings > 1 ? inner + cells : inner) | 0;
-      const next = cells > 1 ? 1 : 0;
+      const x = (t.position_m + own.position_error_m) / bed.c.cellLength_m - 0.5;
+      const held = Math.min(Math.max(x, 0), cells - 1);
+      const cell = Math.min(Math.floor(held), cells - 2);
+      const along = held - cell;
+      const a = ring * cells + cell;
+      const b = outer * cells + cell;
       return {
         id: t.id,
         group: t.group,
         draw: own,
-        cells: [inner, inner + next, outer, outer + next],
+        cells: [a, a + 1, b, b + 1],
         weights: [
           (1 - across) * (1 - along),
           (1 - across) * along,
@@ -99,11 +104,4 @@ function placesOf(store: StoreGeometry, bed: Bed, draw: PlantDraw): Place[] {
       };
     });
   });
-}
-
-/** Lower neighbour and share of the upper one for a fractional index, held within the ends. */
-function between(index: number, count: number): [number, number] {
-  const held = Math.min(Math.max(index, 0), count - 1);
-  const low = Math.min(Math.floor(held), Math.max(count - 2, 0));
-  return [low, held - low];
 }

@@ -1,4 +1,4 @@
-import { Bed } from './bed.js';
+import { type Bed, createBed } from './bed.js';
 import type { PlantDraw } from './draws.js';
 import { FLUIDS } from './fluids.js';
 import { frontsOf, type TruthFront } from './fronts.js';
@@ -6,10 +6,9 @@ import type { StoreGeometry } from './geometry.js';
 import { ThermocoupleArray } from './sensors.js';
 import { SOLIDS } from './solids.js';
 import { pressureGradient } from './transfer.js';
-import { channelled, meanProfile, ringShares, tubeFlow } from './tubes.js';
+import { channelled, meanProfile, type RingLayout, tubeFlow } from './tubes.js';
 
 export interface Resolution {
-  readonly rings: number;
   readonly cells: number;
   readonly shells: number;
 }
@@ -52,7 +51,7 @@ export class SimulatedStore {
   inlet_K: number | null = null;
   outlet_K: number | null = null;
   private baseRingFlow: readonly number[];
-  readonly shares: Float64Array;
+  readonly layout: RingLayout;
 
   constructor(
     readonly geometry: StoreGeometry,
@@ -67,21 +66,24 @@ export class SimulatedStore {
       this.inlet_K = from.inlet_K;
       this.outlet_K = from.outlet_K;
       this.baseRingFlow = from.baseRingFlow;
-      this.shares = from.shares;
+      this.layout = from.layout;
       return;
     }
     const own = draw.stores[geometry.id]!;
     const fluid = FLUIDS[geometry.fluid]!;
     const solid = typeof geometry.solid === 'string' ? SOLIDS[geometry.solid] : geometry.solid;
     if (!solid) throw new RangeError(`solid ${String(geometry.solid)} is not known here`);
-    this.bed = new Bed({
+    this.layout = own.layout;
+    this.bed = createBed({
       ...geometry,
       ...resolution,
+      ring_shares: own.layout.shares,
       solid,
       fluid,
       void_fraction: own.void_fraction,
       heat_capacity_factor: own.heat_capacity_factor,
       conductivity_factor: own.conductivity_factor,
+      stirring_factor: own.stirring_factor,
       wall_loss_W_m2K: geometry.wall_loss_W_m2K * own.loss_factor,
       end_loss_W_m2K: [
         geometry.end_loss_W_m2K[0] * own.loss_factor,
@@ -94,7 +96,6 @@ export class SimulatedStore {
     this.bed.heatTransferFactor = own.heat_transfer_factor;
     this.baseRingFlow = own.ring_flow;
     this.bed.ringFlow.set(own.ring_flow);
-    this.shares = ringShares(geometry, resolution.rings);
     this.thermocouples = new ThermocoupleArray(geometry, this.bed, draw);
     this.pipe_K = [288.15, 288.15];
   }
@@ -145,7 +146,7 @@ export class SimulatedStore {
   channel(string: string, factor: number): void {
     const s = this.geometry.strings.findIndex((known) => known.id === string);
     if (s < 0) throw new RangeError(`string ${string} is not in store ${this.geometry.id}`);
-    this.bed.ringFlow.set(channelled(this.baseRingFlow, this.shares, s, factor));
+    this.bed.ringFlow.set(channelled(this.baseRingFlow, this.layout, s, factor));
   }
 
   pressureDrop_Pa(flow_kg_s: number): number {
@@ -162,18 +163,20 @@ export class SimulatedStore {
         p.void_fraction,
       );
     }
-    return sum * this.bed.cellLength_m;
+    return sum * this.bed.c.cellLength_m;
   }
 
   /** Area-mean temperature of the rock over x, cell centres [K]. */
   profile(): Float64Array {
-    return meanProfile(this.bed, new Float64Array(this.bed.p.rings).fill(1));
+    return meanProfile(
+      this.bed,
+      this.layout.shares.map((_, r) => r),
+    );
   }
 
   /** The same of the tube of one string. */
   tubeProfile(string: number): Float64Array {
-    const { rings } = this.bed.p;
-    return meanProfile(this.bed, this.shares.subarray(string * rings, (string + 1) * rings));
+    return meanProfile(this.bed, this.layout.ringsOf[string]!);
   }
 
   truth(): StoreTruth {
@@ -182,13 +185,13 @@ export class SimulatedStore {
     const [empty, full] = kind === 'hot' ? [cold, hot] : [hot, cold];
     const capacity = Math.abs(bed.capacityBetween_J(empty, full));
     const stored = kind === 'hot' ? bed.heatAbove_J(empty) : -bed.heatAbove_J(empty);
-    const fronts = (T: Float64Array) => frontsOf(T, bed.cellLength_m, cold, hot);
+    const fronts = (T: Float64Array) => frontsOf(T, bed.c.cellLength_m, cold, hot);
     const tube = (flow_factor: number, T: Float64Array): TubeTruth => {
       const only = fronts(T);
       const one = only.length === 1 ? only[0]! : null;
       return { flow_factor, position_m: one?.position_m ?? null, width_m: one?.width_m ?? null };
     };
-    const flows = tubeFlow(bed, this.shares, geometry.strings.length);
+    const flows = tubeFlow(bed, this.layout);
     const ringProfile = (r: number) => bed.mean.slice(r * bed.p.cells, (r + 1) * bed.p.cells);
     return {
       soc: stored / capacity,
@@ -204,7 +207,7 @@ export class SimulatedStore {
         id: s.id,
         ...tube(flows[i]!, this.tubeProfile(i)),
       })),
-      rings: Array.from({ length: bed.p.rings }, (_, r) => tube(bed.ringFlow[r]!, ringProfile(r))),
+      rings: Array.from({ length: bed.c.rings }, (_, r) => tube(bed.ringFlow[r]!, ringProfile(r))),
     };
   }
 }

@@ -70,7 +70,7 @@ const SWEEP_S = 600;
 /** Flow follows its set point with this time constant after a change [s]. */
 const RAMP_S = 60;
 
-export const DEFAULT_RESOLUTION: Resolution = { rings: 6, cells: 400, shells: 3 };
+export const DEFAULT_RESOLUTION: Resolution = { cells: 400, shells: 3 };
 const DEFAULT_START_S = 1735689600;
 
 /** The plant that knows the truth. All its state is copied by `clone`. */
@@ -127,7 +127,7 @@ export class Truth {
       this.started = new Map(from.started);
       return;
     }
-    const draw = drawPlant(geometry, seed, resolution.rings, {
+    const draw = drawPlant(geometry, seed, {
       physics: options.physics ?? 'random',
       machine: options.machine ?? 'random',
       sensors: options.sensors ?? 'class',

@@ -1,76 +1,78 @@
 import type { Bed } from './bed.js';
 import type { StoreGeometry } from './geometry.js';
 
-/**
- * Share of each ring in the tube of each string: tubes are laid out from the axis outwards in the
- * order of the strings' radii, each with its share of the area; rings have equal areas.
- * Row-major, strings x rings; each ring's column sums to 1.
- */
-export function ringShares(store: StoreGeometry, rings: number): Float64Array {
-  const shares = new Float64Array(store.strings.length * rings);
-  const order = store.strings
-    .map((_, s) => s)
-    .sort((a, b) => store.strings[a]!.radius_m - store.strings[b]!.radius_m);
-  let from = 0;
-  for (const s of order) {
-    const to = from + store.strings[s]!.area_share * rings;
-    for (let r = 0; r < rings; r++) {
-      shares[s * rings + r] = Math.max(0, Math.min(to, r + 1) - Math.max(from, r));
-    }
-    from = to;
-  }
-  return shares;
+/** How the rings of a bed lie in the tubes of its strings. */
+export interface RingLayout {
+  /** Share of the cross-section of each ring, from the axis outwards. */
+  readonly shares: readonly number[];
+  /** Rings of the tube of each string, in the order of the strings; none for a string without area. */
+  readonly ringsOf: readonly (readonly number[])[];
 }
 
-/** Mean temperature over the given shares of the rings, cell by cell [K]. */
-export function meanProfile(bed: Bed, ringWeights: ArrayLike<number>): Float64Array {
-  const { rings, cells } = bed.p;
+const RINGS_AT_LEAST = 6;
+
+/**
+ * Tubes are laid out from the axis outwards in the order of the strings' radii, each with its share
+ * of the area, and cut into rings of equal area: two or more each, one more in the outermost, for
+ * the heat lost at the wall, and at least six together.
+ */
+export function layOutRings(store: StoreGeometry): RingLayout {
+  const order = store.strings
+    .map((_, s) => s)
+    .filter((s) => store.strings[s]!.area_share > 0)
+    .sort((a, b) => store.strings[a]!.radius_m - store.strings[b]!.radius_m);
+  const each = Math.max(2, Math.ceil((RINGS_AT_LEAST - 1) / order.length));
+  const shares: number[] = [];
+  const ringsOf: number[][] = store.strings.map(() => []);
+  order.forEach((s, place) => {
+    const count = place === order.length - 1 ? each + 1 : each;
+    for (let i = 0; i < count; i++) {
+      ringsOf[s]!.push(shares.length);
+      shares.push(store.strings[s]!.area_share / count);
+    }
+  });
+  return { shares, ringsOf };
+}
+
+/** Area-mean temperature over some rings, cell by cell [K]; NaN for none. */
+export function meanProfile(bed: Bed, rings: readonly number[]): Float64Array {
+  const { cells, ring_shares } = bed.p;
   const profile = new Float64Array(cells);
-  let total = 0;
-  for (let r = 0; r < rings; r++) total += ringWeights[r]!;
-  for (let r = 0; r < rings; r++) {
-    const weight = ringWeights[r]! / total;
-    if (weight === 0) continue;
+  const total = rings.reduce((sum, r) => sum + ring_shares[r]!, 0);
+  if (total === 0) return profile.fill(Number.NaN);
+  for (const r of rings) {
+    const weight = ring_shares[r]! / total;
     for (let i = 0; i < cells; i++) profile[i] = profile[i]! + weight * bed.mean[r * cells + i]!;
   }
   return profile;
 }
 
-/** Flow factor of each tube: share of the flow over share of the area. */
-export function tubeFlow(bed: Bed, shares: Float64Array, strings: number): number[] {
-  const { rings } = bed.p;
-  return Array.from({ length: strings }, (_, s) => {
-    let flow = 0;
-    let area = 0;
-    for (let r = 0; r < rings; r++) {
-      flow += shares[s * rings + r]! * bed.ringFlow[r]!;
-      area += shares[s * rings + r]!;
-    }
-    return flow / area;
+/** Flow factor of each tube: share of the flow over share of the area; NaN without area. */
+export function tubeFlow(bed: Bed, layout: RingLayout): number[] {
+  return layout.ringsOf.map((rings) => {
+    const area = rings.reduce((sum, r) => sum + layout.shares[r]!, 0);
+    return rings.reduce((sum, r) => sum + layout.shares[r]! * bed.ringFlow[r]!, 0) / area;
   });
 }
 
 /**
- * Ring flows when the tube of one string takes `factor` times its flow and the other tubes together
+ * Ring flows when the tube of one string takes `factor` times its flow and the others together
  * lose as much, each in proportion; `base` are the ring flows before.
  */
 export function channelled(
   base: readonly number[],
-  shares: Float64Array,
+  layout: RingLayout,
   string: number,
   factor: number,
 ): number[] {
-  const rings = base.length;
+  const own = new Set(layout.ringsOf[string]!);
   let inside = 0;
   let all = 0;
-  for (let r = 0; r < rings; r++) {
-    inside += shares[string * rings + r]! * base[r]!;
-    all += base[r]!;
-  }
+  base.forEach((flow, r) => {
+    all += flow * layout.shares[r]!;
+    if (own.has(r)) inside += flow * layout.shares[r]!;
+  });
   const rest = (all - factor * inside) / (all - inside);
   if (!(rest > 0)) throw new RangeError(`factor ${factor} leaves no flow for the other tubes`);
-  return base.map((f, r) => {
-    const share = shares[string * rings + r]!;
-    return f * (share * factor + (1 - share) * rest);
-  });
+  return base.map((flow, r) => flow * (own.has(r) ? factor : rest));
 }
