@@ -1,0 +1,105 @@
+import type { DispatchAnswer, Estimate } from '../../core/estimate.js';
+import type { WatchEvent } from '../../core/watch/event.js';
+
+/** As much of the link as announcing needs. */
+export interface Outlet {
+  readonly connected: boolean;
+  publish(topic: string, payload: string): boolean;
+}
+
+/** The standing alarms of a unit and what changed last. */
+export interface AlarmsMessage {
+  readonly time: string;
+  readonly unit: string;
+  readonly standing: readonly object[];
+  readonly last: WatchEvent | null;
+}
+
+export interface AnnouncerOptions {
+  readonly prefix: string;
+  readonly version: string;
+  readonly site: string;
+  /** Wall clock [ms since 1970]. */
+  now(): number;
+}
+
+/** Spacing of the heartbeat [ms]. */
+export const HEARTBEAT_MS = 10_000;
+
+/**
+ * What rockhour says over MQTT, all of it retained and at least once (QoS 1), as JSON:
+ *
+ * - `PREFIX/UNIT/state`     the estimate of the last scan
+ * - `PREFIX/UNIT/dispatch`  `{"time", "unit", "answers": [...]}`: the hours computed last
+ * - `PREFIX/UNIT/alarms`    `{"time", "unit", "standing": [...], "last": event or null}`
+ * - `PREFIX/heartbeat`      `{"status": "online", "time", "site", "version", "uptime_s"}` every 10 s,
+ *                           and `{"status": "offline"}` by the broker's last will or a clean stop
+ *
+ * After an outage the newest of each is said again; what was between is in the history.
+ */
+export class Announcer {
+  private readonly latest = new Map<string, string>();
+  private timer: NodeJS.Timeout | null = null;
+  private readonly started_ms: number;
+
+  constructor(
+    private readonly outlet: Outlet,
+    private readonly options: AnnouncerOptions,
+  ) {
+    this.started_ms = options.now();
+  }
+
+  /** The last will that belongs to the link of this announcer. */
+  static will(prefix: string): { topic: string; payload: string } {
+    return { topic: `${prefix}/heartbeat`, payload: '{"status":"offline"}' };
+  }
+
+  start(): void {
+    this.timer ??= setInterval(() => this.beat(), HEARTBEAT_MS);
+  }
+
+  stop(): void {
+    if (!this.timer) return;
+    clearInterval(this.timer);
+    this.timer = null;
+    const { topic, payload } = Announcer.will(this.options.prefix);
+    this.outlet.publish(topic, payload);
+  }
+
+  /** To be called when the link is up, at the start and after each outage. */
+  connected(): void {
+    this.beat();
+    for (const [topic, payload] of this.latest) this.outlet.publish(topic, payload);
+  }
+
+  state(estimate: Estimate): void {
+    this.say(`${estimate.unit}/state`, estimate);
+  }
+
+  dispatch(unit: string, time: string, answers: readonly DispatchAnswer[]): void {
+    this.say(`${unit}/dispatch`, { time, unit, answers });
+  }
+
+  alarms(message: AlarmsMessage): void {
+    this.say(`${message.unit}/alarms`, message);
+  }
+
+  private say(name: string, content: object): void {
+    const topic = `${this.options.prefix}/${name}`;
+    const payload = JSON.stringify(content);
+    this.latest.set(topic, payload);
+    this.outlet.publish(topic, payload);
+  }
+
+  private beat(): void {
+    const now_ms = this.options.now();
+    const beat = {
+      status: 'online',
+      time: new Date(now_ms).toISOString(),
+      site: this.options.site,
+      version: this.options.version,
+      uptime_s: Math.round((now_ms - this.started_ms) / 1000),
+    };
+    this.outlet.publish(`${this.options.prefix}/heartbeat`, JSON.stringify(beat));
+  }
+}

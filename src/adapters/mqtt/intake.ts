@@ -1,0 +1,192 @@
+import type { ChannelSource } from '../../config/site.js';
+import type { UnitDefinition } from '../../core/definitions.js';
+import type { Delivery } from './link.js';
+import {
+  PAYLOAD_FAULTS,
+  type PayloadFault,
+  type PayloadReading,
+  parsePayload,
+  type Quality,
+  type Route,
+} from './payload.js';
+import { RecentReadings } from './recent.js';
+
+/** What the intake hands on; the shape of the journal's reading. */
+export interface IntakeReading {
+  readonly unit: string;
+  readonly channel: string;
+  readonly time_ms: number;
+  readonly arrival_ms: number;
+  readonly value: number;
+  readonly quality: Quality;
+}
+
+export const INTAKE_COUNTS = [
+  'messages',
+  'readings',
+  'repeated',
+  'unknown_topic',
+  ...PAYLOAD_FAULTS,
+  'journal_failures',
+  'lost_without_journal',
+] as const;
+export type IntakeCount = (typeof INTAKE_COUNTS)[number];
+
+export interface IntakeOptions {
+  readonly units: readonly UnitDefinition[];
+  readonly sources: readonly ChannelSource[];
+  /** Wall clock [ms since 1970]. */
+  now(): number;
+  /** Writes readings to the disk; they are safe when it returns. May throw. */
+  commit(readings: readonly IntakeReading[]): void;
+  count(name: IntakeCount, by: number): void;
+  /** Something that a person may want to read, by kind. */
+  notice(kind: IntakeCount, text: string): void;
+}
+
+/** A group commit waits this long for company [ms]; STACK: PUBACK within 50 ms. */
+const GROUP_MS = 20;
+/** Fewer than a broker's usual in-flight limit (mosquitto: 20), so that a burst never waits. */
+const GROUP_MESSAGES = 16;
+/** After a failed commit [ms]. */
+const RETRY_MS = 1000;
+/** Unwritten readings kept while the journal fails; only QoS 0 can bring more than a broker holds back. */
+const MOST_UNWRITTEN = 200_000;
+/** Longest piece of a payload that goes into a notice. */
+const EXCERPT = 120;
+
+/**
+ * Messages to readings to the journal, and only then to the acknowledgement, many at a time. A
+ * message of which nothing can be used is counted, told and acknowledged: sent again it would be
+ * no better.
+ */
+export class Intake {
+  private readonly routes = new Map<string, Route[]>();
+  private readonly recent = new RecentReadings();
+  private unwritten: IntakeReading[] = [];
+  private unacknowledged: (() => void)[] = [];
+  private unflushed = 0;
+  private timer: NodeJS.Timeout | null = null;
+  private failing = false;
+
+  constructor(private readonly options: IntakeOptions) {
+    const channels = new Map(
+      options.units.flatMap((unit) =>
+        unit.channels.map((channel) => [`${unit.id}\n${channel.id}`, channel] as const),
+      ),
+    );
+    for (const source of options.sources) {
+      const defined = source.channels.map((id) => {
+        const channel = channels.get(`${source.unit}\n${id}`);
+        if (!channel) {
+          throw new RangeError(
+            `sources: topic ${source.topic} must name channels of unit ${source.unit}, got ${id}`,
+          );
+        }
+        return channel;
+      });
+      const routes = this.routes.get(source.topic) ?? [];
+      this.routes.set(source.topic, [...routes, { source, channels: defined }]);
+    }
+  }
+
+  get topics(): string[] {
+    return [...this.routes.keys()];
+  }
+
+  /** True while the last commit failed and readings wait for the next try. */
+  get stuck(): boolean {
+    return this.failing;
+  }
+
+  /** Readings already in the journal, newest last: what the broker may send once more. */
+  remember(readings: Iterable<IntakeReading>): void {
+    for (const reading of readings) this.recent.seen(reading);
+  }
+
+  receive(delivery: Delivery): void {
+    const { count, notice } = this.options;
+    count('messages', 1);
+    this.unflushed++;
+    if (delivery.acknowledge) this.unacknowledged.push(delivery.acknowledge);
+    const routes = this.routes.get(delivery.topic);
+    if (routes) for (const route of routes) this.takeIn(route, delivery);
+    else {
+      count('unknown_topic', 1);
+      notice('unknown_topic', `nothing is configured for topic ${delivery.topic}`);
+    }
+    if (this.failing) return;
+    if (this.unflushed >= GROUP_MESSAGES) this.flush();
+    else this.timer ??= setTimeout(() => this.flush(), GROUP_MS);
+  }
+
+  /** Commits what waits and acknowledges it. */
+  flush(): void {
+    if (this.timer) clearTimeout(this.timer);
+    this.timer = null;
+    try {
+      if (this.unwritten.length > 0) this.options.commit(this.unwritten);
+    } catch (thrown) {
+      this.failed(thrown);
+      return;
+    }
+    this.failing = false;
+    this.options.count('readings', this.unwritten.length);
+    this.unwritten = [];
+    this.unflushed = 0;
+    const safe = this.unacknowledged;
+    this.unacknowledged = [];
+    // In the order of arrival, as MQTT-4.6.0-2 asks.
+    for (const acknowledge of safe) acknowledge();
+  }
+
+  /** Commits what waits, as far as possible, and forgets the rest: the broker still has it. */
+  stop(): void {
+    this.flush();
+    if (this.timer) clearTimeout(this.timer);
+    this.timer = null;
+  }
+
+  private takeIn(route: Route, delivery: Delivery): void {
+    const arrival_ms = this.options.now();
+    const text = delivery.payload.toString('utf8');
+    const fault = (name: PayloadFault) => {
+      this.options.count(name, 1);
+      this.options.notice(name, `topic ${delivery.topic}: ${excerpt(text)}`);
+    };
+    for (const reading of parsePayload(route, text, arrival_ms, fault)) {
+      this.queue(route.source.unit, reading, arrival_ms);
+    }
+  }
+
+  private queue(unit: string, found: PayloadReading, arrival_ms: number): void {
+    const { time_ms, value, quality } = found;
+    const reading = { unit, channel: found.channel.id, time_ms, arrival_ms, value, quality };
+    if (this.unwritten.length >= MOST_UNWRITTEN) {
+      this.options.count('lost_without_journal', 1);
+      return;
+    }
+    if (this.recent.seen(reading)) {
+      this.options.count('repeated', 1);
+      return;
+    }
+    this.unwritten.push(reading);
+  }
+
+  private failed(thrown: unknown): void {
+    this.failing = true;
+    this.options.count('journal_failures', 1);
+    this.options.notice(
+      'journal_failures',
+      `${this.unwritten.length} readings wait: ${
+        thrown instanceof Error ? thrown.message : String(thrown)
+      }`,
+    );
+    this.timer = setTimeout(() => this.flush(), RETRY_MS);
+  }
+}
+
+function excerpt(text: string): string {
+  const line = text.replace(/\s+/g, ' ').trim();
+  return line.length > EXCERPT ? `${line.slice(0, EXCERPT)}... (${text.length} characters)` : line;
+}

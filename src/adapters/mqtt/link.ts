@@ -1,0 +1,187 @@
+import { connect, type IClientOptions, type IPublishPacket, type MqttClient } from 'mqtt';
+import { reasonOf } from '../../errors.js';
+
+/** A message that came in. It is the broker's until it is acknowledged. */
+export interface Delivery {
+  readonly topic: string;
+  readonly payload: Buffer;
+  /** The broker says that it may have sent it before. */
+  readonly duplicate: boolean;
+  /**
+   * Tells the broker that the message is safe; does nothing once the connection that it came by is
+   * gone. null where the broker wants no acknowledgement (QoS 0).
+   */
+  readonly acknowledge: (() => void) | null;
+}
+
+export interface LinkOptions {
+  readonly url: string;
+  readonly client_id: string;
+  readonly username: string | null;
+  readonly password: string | null;
+  readonly protocol: 4 | 5;
+  readonly qos: 0 | 1;
+  readonly topics: readonly string[];
+  /** Retained message that the broker publishes when this client is gone. */
+  readonly will: { readonly topic: string; readonly payload: string };
+  receive(delivery: Delivery): void;
+  /** Connected and subscribed: at the start and after each outage. */
+  up(): void;
+  /** Not connected, and why: once per outage. */
+  down(reason: string): void;
+  /** The broker refused a subscription; the link stays up. */
+  refused(reason: string): void;
+}
+
+/** How long the broker keeps the session of an absent rockhour [s]: a week. MQTT 5 has to be told. */
+const SESSION_EXPIRY_S = 7 * 86_400;
+const RECONNECT_MS = 1000;
+const CONNECT_TIMEOUT_MS = 10_000;
+const KEEPALIVE_S = 15;
+/** Well below the 20 s within which a clean end must be through. */
+const END_MS = 1000;
+
+/** A message handed on but not yet acknowledged: MQTT.js then sends no PUBACK of its own. */
+const LATER = new Error('acknowledged apart from the handler');
+
+/** The parts of MQTT.js 5.16 that are not exposed; held by a contract test. */
+interface PacketWriter {
+  _sendPacket(packet: { cmd: 'puback'; messageId: number; reasonCode: number }): void;
+}
+
+/**
+ * The one wrapper of MQTT.js. It keeps a session at the broker, subscribes on every connect, tells
+ * an outage once, and hands out messages with an acknowledgement of their own: MQTT.js would send
+ * the PUBACK when its handler calls back and take no further message before, which makes one
+ * message per commit of the journal.
+ */
+export class MqttLink {
+  private client: MqttClient | null = null;
+  /** Counts connections: an acknowledgement may only go out by the one its message came by. */
+  private connection = 0;
+  private isUp = false;
+  private isToldDown = false;
+  /** Newest payload that waits per topic while an older one is on its way. */
+  private readonly waiting = new Map<string, string | null>();
+
+  constructor(private readonly options: LinkOptions) {}
+
+  get connected(): boolean {
+    return this.isUp;
+  }
+
+  start(): void {
+    if (this.client) return;
+    const client = connect(this.options.url, clientOptions(this.options));
+    this.client = client;
+    client.handleMessage = (packet, done) => this.take(packet as IPublishPacket, done);
+    client.on('connect', () => this.subscribe(client));
+    client.on('close', () => {
+      this.connection++;
+      this.isUp = false;
+      this.tellDown('the connection was closed');
+    });
+    // Emitted at each try; without a listener it would end the process.
+    client.on('error', (error) => {
+      if (!client.connected) this.tellDown(reasonOf(error));
+    });
+  }
+
+  async stop(): Promise<void> {
+    const client = this.client;
+    this.client = null;
+    if (!client) return;
+    const wasUp = this.isUp;
+    this.isUp = false;
+    this.connection++;
+    let timer: NodeJS.Timeout | undefined;
+    const inTime = new Promise<void>((resolve) => {
+      timer = setTimeout(resolve, END_MS);
+    });
+    await Promise.race([client.endAsync(!wasUp), inTime]);
+    clearTimeout(timer);
+    client.stream.destroy();
+  }
+
+  /**
+   * Publishes a retained message, at least once. While an earlier one to the same topic is on its
+   * way only the newest waits: a slow broker costs no memory.
+   * @returns false where there is no connection; nothing is kept then
+   */
+  publish(topic: string, payload: string): boolean {
+    if (!this.isUp || !this.client) return false;
+    if (this.waiting.has(topic)) this.waiting.set(topic, payload);
+    else this.send(this.client, topic, payload);
+    return true;
+  }
+
+  private send(client: MqttClient, topic: string, payload: string): void {
+    this.waiting.set(topic, null);
+    client.publish(topic, payload, { qos: 1, retain: true }, () => {
+      const next = this.waiting.get(topic);
+      this.waiting.delete(topic);
+      if (typeof next === 'string') this.publish(topic, next);
+    });
+  }
+
+  private subscribe(client: MqttClient): void {
+    this.connection++;
+    const { topics, qos } = this.options;
+    const ready = () => {
+      this.isUp = true;
+      this.isToldDown = false;
+      this.options.up();
+    };
+    if (topics.length === 0) {
+      ready();
+      return;
+    }
+    client.subscribe([...topics], { qos }, (error) => {
+      if (this.client !== client || !client.connected) return;
+      if (error) this.options.refused(reasonOf(error));
+      ready();
+    });
+  }
+
+  private tellDown(reason: string): void {
+    if (!this.client || this.isToldDown) return;
+    this.isToldDown = true;
+    this.options.down(reason);
+  }
+
+  private take(packet: IPublishPacket, done: (error?: Error) => void): void {
+    const { connection } = this;
+    const { messageId, qos } = packet;
+    const client = this.client;
+    const acknowledge = (id: number) => {
+      if (connection !== this.connection || !client?.connected) return;
+      const writer = client as unknown as PacketWriter;
+      writer._sendPacket({ cmd: 'puback', messageId: id, reasonCode: 0 });
+    };
+    this.options.receive({
+      topic: packet.topic,
+      payload: Buffer.isBuffer(packet.payload) ? packet.payload : Buffer.from(packet.payload),
+      duplicate: packet.dup,
+      acknowledge: qos !== 1 || messageId === undefined ? null : () => acknowledge(messageId),
+    });
+    done(qos === 1 ? LATER : undefined);
+  }
+}
+
+function clientOptions(options: LinkOptions): IClientOptions {
+  return {
+    clientId: options.client_id,
+    clean: false,
+    protocolVersion: options.protocol,
+    ...(options.username === null ? {} : { username: options.username }),
+    ...(options.password === null ? {} : { password: options.password }),
+    ...(options.protocol === 5 ? { properties: { sessionExpiryInterval: SESSION_EXPIRY_S } } : {}),
+    will: { ...options.will, payload: Buffer.from(options.will.payload), qos: 1, retain: true },
+    keepalive: KEEPALIVE_S,
+    reconnectPeriod: RECONNECT_MS,
+    connectTimeout: CONNECT_TIMEOUT_MS,
+    reconnectOnConnackError: true,
+    resubscribe: false,
+    queueQoSZero: false,
+  };
+}
