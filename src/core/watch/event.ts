@@ -1,0 +1,29 @@
+/** Something that a person may want to know: raised, or returned to normal. */
+export const EVENT_KINDS = [
+  'front_spread',
+  'sensor_rejected',
+  'data_stale',
+  'outlet_near_limit',
+  'front_view_disagrees',
+  'database_unreachable',
+] as const;
+export type EventKind = (typeof EVENT_KINDS)[number];
+
+export interface WatchEvent {
+  /** Stable over raise and return: `${unit}/${kind}/${subject}`. */
+  readonly id: string;
+  readonly unit: string;
+  readonly kind: EventKind;
+  /** An alarm needs the operator to act in time; an alert informs those it concerns (ISA-18.2). */
+  readonly class: 'alarm' | 'alert';
+  readonly priority: 'high' | 'medium' | 'low';
+  /** Store, sensor or service that it concerns. */
+  readonly subject: string;
+  readonly transition: 'raised' | 'returned';
+  /** ISO 8601 UTC, source time. */
+  readonly time: string;
+  readonly value: number | null;
+  readonly limit: number | null;
+  /** Plain sentence with the value and what it means. */
+  readonly message: string;
+}

@@ -1,0 +1,124 @@
+import type { StoreKind } from '../definitions.js';
+import type { RejectedSensor, SensorVerdict } from '../estimate.js';
+
+/** Sentences for a tired person: what is the case, by how much, what it means, what to look at. */
+
+/** Readings of one sensor. */
+const VERDICT_WORDS: Readonly<Record<SensorVerdict, string>> = {
+  open: 'gives no reading',
+  burst: 'reads beyond anything the store can be',
+  stuck: 'does not move although its surroundings do',
+  drifting: 'drifts away from its neighbours',
+  offset: 'reads off by a constant amount',
+  reversed: 'reads mirrored, as with reversed polarity',
+  outlier: 'does not fit its neighbours',
+  group_fault: 'is off together with the others of its group',
+  uncovered: 'seems to sit in gas, no longer in the bed',
+};
+
+const VERDICT_LOOK: Readonly<Record<SensorVerdict, string>> = {
+  open: 'its cable, terminals and channel',
+  burst: 'its cable, terminals and channel',
+  stuck: 'the gateway and the channel that hold its value',
+  drifting: 'the thermocouple itself at the next calibration',
+  offset: 'its cold junction and extension cable',
+  reversed: 'its two wires',
+  outlier: 'its trend beside its neighbours',
+  group_fault: 'the card, cold junction or cable that the group shares',
+  uncovered: 'the level of the bed at the top',
+};
+
+export function degC(kelvin: number): string {
+  return `${(kelvin - 273.15).toFixed(1)} degC`;
+}
+
+export function duration(seconds: number): string {
+  if (seconds < 120) return `${Math.round(seconds)} s`;
+  if (seconds < 7200) return `${Math.round(seconds / 60)} min`;
+  return `${(seconds / 3600).toFixed(1)} h`;
+}
+
+export function spreadRaised(store: string, ratio: number, sigma: number, limit: number): string {
+  return (
+    `Store ${store}: its front is ${ratio.toFixed(2)} +/- ${sigma.toFixed(2)} times as wide as a ` +
+    `healthy bed would show after the same history (limit ${limit.toFixed(2)}). A wide front gives ` +
+    'fewer hours than the stored heat suggests. Look at the heat-transfer factor (low: dust or ' +
+    'fines) and at the flow factors of the strings (unlike: gas finds a channel).'
+  );
+}
+
+export function spreadReturned(store: string, ratio: number, limit: number): string {
+  return `Store ${store}: its front is back to ${ratio.toFixed(2)} times the healthy width (limit ${limit.toFixed(2)}).`;
+}
+
+export function sensorRaised(store: string, sensor: RejectedSensor): string {
+  return (
+    `Thermocouple ${sensor.id} in store ${store} ${VERDICT_WORDS[sensor.verdict]} ` +
+    `(${sensor.verdict}${sensor.evidence === '' ? '' : `: ${sensor.evidence}`}). Its readings are left out ` +
+    `since ${sensor.since}; the estimate goes on with a larger sigma there. Look at ` +
+    `${VERDICT_LOOK[sensor.verdict]}.`
+  );
+}
+
+export function sensorReturned(store: string, sensor: string): string {
+  return `Thermocouple ${sensor} in store ${store} is used again.`;
+}
+
+export function staleRaised(unit: string, age_s: number, limit_s: number): string {
+  return (
+    `Unit ${unit}: no reading for ${duration(age_s)} (limit ${duration(limit_s)}). Fronts, energy and ` +
+    'hours are predictions now and grow less certain. Look at the gateway and the broker, and go by ' +
+    "the control system's own readings meanwhile."
+  );
+}
+
+export function staleReturned(unit: string): string {
+  return `Unit ${unit}: readings arrive again.`;
+}
+
+export function outletRaised(
+  store: string,
+  kind: StoreKind,
+  outlet_K: number,
+  stop_K: number,
+): string {
+  const margin = kind === 'hot' ? outlet_K - stop_K : stop_K - outlet_K;
+  const [side, drift] = kind === 'hot' ? ['above', 'falling'] : ['below', 'rising'];
+  const where =
+    margin >= 0
+      ? `${margin.toFixed(1)} K ${side} the limit of ${degC(stop_K)} where the discharge ends`
+      : `${(-margin).toFixed(1)} K past the limit of ${degC(stop_K)} where the discharge ends`;
+  return (
+    `Store ${store}: its outlet is at ${degC(outlet_K)}, ${where}, and ${drift} as the store runs ` +
+    'out. Prepare the change-over or lower the power, and look at the remaining hours.'
+  );
+}
+
+export function outletReturned(store: string): string {
+  return `Store ${store}: its outlet is away from its limit again, or the discharge has ended.`;
+}
+
+export function viewRaised(store: string, string: string, sigmas: number, limit: number): string {
+  const ahead = sigmas > 0 ? 'further from' : 'nearer to';
+  return (
+    `Store ${store}, string ${string}: the fitted front stands ${Math.abs(sigmas).toFixed(1)} sigmas ` +
+    `${ahead} the charge inlet than the bed model says (limit ${limit.toFixed(1)}). Hours go by the ` +
+    'bed model. Look at the profile of this string, at its sensors, and at the flow meter.'
+  );
+}
+
+export function viewReturned(store: string, string: string): string {
+  return `Store ${store}, string ${string}: fitted front and bed model agree again, or the front has left the string.`;
+}
+
+export function databaseRaised(service: string, down_s: number, detail: string): string {
+  return (
+    `${service} has not been reachable for ${duration(down_s)}${detail === '' ? '' : ` (${detail})`}. ` +
+    'Nothing is lost: readings and estimates are kept on this machine and sent on once it answers. ' +
+    'Look at the server and the network.'
+  );
+}
+
+export function databaseReturned(service: string): string {
+  return `${service} answers again; what was kept is being sent on.`;
+}

@@ -1,0 +1,196 @@
+import type { Mode, StoreDefinition, UnitDefinition } from '../definitions.js';
+import type { Estimate, StoreEstimate } from '../estimate.js';
+import {
+  type ConditionState,
+  type ConditionTiming,
+  type Evidence,
+  evidenceOf,
+  isIdle,
+  startCondition,
+  stepEvidence,
+} from './condition.js';
+import type { EventKind, WatchEvent } from './event.js';
+import { watchEvent } from './kinds.js';
+import * as say from './messages.js';
+
+/** A spread ratio and its sigma [-]; null where front or twin has no width now. */
+export type Spread = { readonly ratio: number; readonly sigma: number } | null;
+
+export interface WatchInput {
+  /** Source time of the scan [ms]. */
+  readonly time_ms: number;
+  readonly mode: Mode;
+  readonly estimate: Estimate;
+  /** By store id. */
+  readonly spread: Readonly<Record<string, Spread>>;
+  /** How many readings this scan brought, of any channel. */
+  readonly readingsSeen: number;
+}
+
+/** Plain and bounded: at most one entry per kind and subject of the unit. */
+export interface WatchState {
+  conditions: Record<string, ConditionState>;
+  /** Source time of the last scan with a reading; of the first scan before there was one [ms]. */
+  lastReading_ms: number | null;
+}
+
+/** Front view and tubes disagree beyond this many sigmas of their difference... */
+const DISAGREEMENT = { limit: 3, deadband: 1, on_delay_s: 900, off_delay_s: 900 };
+/** A spread counts as evidence where the ratio less this many sigmas is above the limit. */
+const SPREAD_SIGMAS = 2;
+/** A delay starts afresh after this many scan periods without a scan. */
+const GAP_SCANS = 5;
+
+export function startWatch(): WatchState {
+  return { conditions: {}, lastReading_ms: null };
+}
+
+/**
+ * Holds one scan's estimate against the unit's limits and returns what was raised or returned now,
+ * in the order of the stores.
+ *
+ * @param state changed in place
+ * @throws RangeError for a time before the last one
+ */
+export function stepWatch(
+  unit: UnitDefinition,
+  state: WatchState,
+  input: WatchInput,
+): WatchEvent[] {
+  const events: WatchEvent[] = [];
+  const step: Step = (kind, subject, evidence, timing, value, limit, message) => {
+    const key = `${kind}/${subject}`;
+    const condition = state.conditions[key] ?? startCondition();
+    const transition = stepEvidence(condition, evidence, {
+      time_ms: input.time_ms,
+      gap_s: GAP_SCANS * unit.scan_period_s,
+      ...timing,
+    });
+    if (isIdle(condition)) delete state.conditions[key];
+    else state.conditions[key] = condition;
+    if (transition === null) return;
+    const parts = { unit: unit.id, kind, subject, transition, time_ms: input.time_ms };
+    events.push(watchEvent({ ...parts, value, limit, message: message(transition === 'raised') }));
+  };
+
+  watchAge(unit, state, input, step);
+  for (const store of unit.stores) {
+    const estimate = input.estimate.stores[store.id];
+    if (estimate === undefined) continue;
+    watchSpread(unit, store, input.spread[store.id] ?? null, step);
+    watchSensors(unit, state, store, estimate, step);
+    watchOutlet(unit, store, estimate, input.mode, step);
+    watchViews(store, estimate, step);
+  }
+  return events;
+}
+
+type Step = (
+  kind: EventKind,
+  subject: string,
+  evidence: Evidence,
+  delays: Pick<ConditionTiming, 'on_delay_s' | 'off_delay_s'>,
+  value: number | null,
+  limit: number | null,
+  message: (raised: boolean) => string,
+) => void;
+
+/** Age in source time, by scans without any reading. */
+function watchAge(unit: UnitDefinition, state: WatchState, input: WatchInput, step: Step): void {
+  if (input.readingsSeen > 0 || state.lastReading_ms === null) state.lastReading_ms = input.time_ms;
+  const rule = unit.watch.data_age_s;
+  const age = (input.time_ms - state.lastReading_ms) / 1000;
+  step(
+    'data_stale',
+    unit.id,
+    evidenceOf({ ...rule, value: age }),
+    rule,
+    age,
+    rule.limit,
+    (raised) => (raised ? say.staleRaised(unit.id, age, rule.limit) : say.staleReturned(unit.id)),
+  );
+}
+
+/**
+ * Wider than the limit only where the ratio less two sigmas is; back only where the ratio itself is
+ * below limit less deadband. So a ratio that grows uncertain neither raises nor clears, and one that
+ * is not known says nothing.
+ */
+function watchSpread(
+  unit: UnitDefinition,
+  store: StoreDefinition,
+  spread: Spread,
+  step: Step,
+): void {
+  const rule = unit.watch.spread_ratio;
+  const ratio = spread?.ratio ?? null;
+  const sure = spread === null ? null : spread.ratio - SPREAD_SIGMAS * spread.sigma;
+  const active = evidenceOf({ ...rule, value: sure }) === 'active';
+  const point = evidenceOf({ ...rule, value: ratio });
+  const evidence = active ? 'active' : point === 'active' ? 'between' : point;
+  step('front_spread', store.id, evidence, rule, ratio, rule.limit, (raised) =>
+    raised
+      ? say.spreadRaised(store.id, ratio ?? Number.NaN, spread?.sigma ?? Number.NaN, rule.limit)
+      : say.spreadReturned(store.id, ratio ?? Number.NaN, rule.limit),
+  );
+}
+
+function watchSensors(
+  unit: UnitDefinition,
+  state: WatchState,
+  store: StoreDefinition,
+  estimate: StoreEstimate,
+  step: Step,
+): void {
+  const rule = unit.watch.sensor_rejected;
+  for (const string of store.strings) {
+    for (const { id } of string.thermocouples) {
+      const rejected = estimate.sensors.rejected.find((sensor) => sensor.id === id);
+      if (rejected === undefined && state.conditions[`sensor_rejected/${id}`] === undefined)
+        continue;
+      step('sensor_rejected', id, rejected ? 'active' : 'clear', rule, null, null, () =>
+        rejected ? say.sensorRaised(store.id, rejected) : say.sensorReturned(store.id, id),
+      );
+    }
+  }
+}
+
+/** Only while discharging: a store that stands or charges runs into no discharge limit. */
+function watchOutlet(
+  unit: UnitDefinition,
+  store: StoreDefinition,
+  estimate: StoreEstimate,
+  mode: Mode,
+  step: Step,
+): void {
+  const hot = store.kind === 'hot';
+  const stop = hot ? unit.limits.hot_outlet_min_K : unit.limits.cold_outlet_max_K;
+  if (stop === null) return;
+  const rule = unit.watch.outlet_margin_K;
+  const outlet = estimate.outlet_K;
+  const margin = outlet === null ? null : hot ? outlet - stop : stop - outlet;
+  const evidence =
+    mode === 'discharge' ? evidenceOf({ ...rule, value: margin, sense: 'below' }) : 'clear';
+  step('outlet_near_limit', store.id, evidence, rule, margin, rule.limit, (raised) =>
+    raised && outlet !== null
+      ? say.outletRaised(store.id, store.kind, outlet, stop)
+      : say.outletReturned(store.id),
+  );
+}
+
+/** A view that only predicts says nothing; a string without a front has nothing to disagree on. */
+function watchViews(store: StoreDefinition, estimate: StoreEstimate, step: Step): void {
+  for (const view of estimate.front_views) {
+    const sigmas = view.disagreement;
+    const size = sigmas === null ? 0 : Math.abs(sigmas);
+    const evidence =
+      sigmas !== null && !view.seen ? 'unknown' : evidenceOf({ ...DISAGREEMENT, value: size });
+    const { limit } = DISAGREEMENT;
+    const subject = `${store.id}/${view.id}`;
+    step('front_view_disagrees', subject, evidence, DISAGREEMENT, sigmas, limit, (raised) =>
+      raised && sigmas !== null
+        ? say.viewRaised(store.id, view.id, sigmas, limit)
+        : say.viewReturned(store.id, view.id),
+    );
+  }
+}
