@@ -1,4 +1,4 @@
-import { fluidByName, liquidOf } from '../core/bed/fluids.js';
+import { fluidByName, gasAtPressure, liquidOf } from '../core/bed/fluids.js';
 import { solidByName, solidFromPolynomial, solidFromTable } from '../core/bed/solids.js';
 import type { Fluid, Solid, StoreDefinition } from '../core/definitions.js';
 import { ZERO_CELSIUS_K } from '../core/units.js';
@@ -56,7 +56,11 @@ export function resolveStore(store: StoreBlock): StoreDefinition {
       particle_diameter_m: bed.particle_diameter_mm * 1e-3,
       void_fraction: bed.void_fraction,
       solid: resolveSolid(bed.solid),
-      fluid: resolveFluid(bed.fluid),
+      fluid:
+        // A store's pressure is fixed, so its gas may be the real one at that pressure.
+        typeof bed.fluid === 'string'
+          ? gasAtPressure(bed.fluid, store.pressure_bar * 1e5)
+          : resolveFluid(bed.fluid),
       pressure_Pa: store.pressure_bar * 1e5,
       particle_shape: bed.particle_shape,
       heat_transfer_factor: factors.heat_transfer,

@@ -1,0 +1,94 @@
+import type { UnitDefinition } from '../../core/definitions.js';
+import { ZERO_CELSIUS_K } from '../../core/units.js';
+import type { UnitFacts } from './unitFacts.js';
+
+/** Below this distance to the dew point [K] droplets may form in a cold corner. */
+const DEW_MARGIN_K = 10;
+/** Fewer thermocouples across a front tell its place, but hardly its width. */
+const FEW_PER_FRONT = 2;
+/** Machine and references may differ by this share of the span before it is worth a word. */
+const REFERENCE_SHARE = 0.03;
+
+/** Things in a sound configuration that a person should look at. */
+export function notesOf(
+  unit: UnitDefinition,
+  facts: Omit<UnitFacts, 'missing' | 'notes'>,
+): string[] {
+  return [
+    ...ratedNotes(facts),
+    ...unit.stores.flatMap((store, s) => storeNotes(unit, store, facts, s)),
+  ];
+}
+
+function ratedNotes(facts: Omit<UnitFacts, 'missing' | 'notes'>): string[] {
+  const notes: string[] = [];
+  const { discharge, charge } = facts.cycle;
+  if (facts.discharge.flow_kg_s === null) {
+    notes.push('no flow gives the rated power, even with both stores full');
+  }
+  if (discharge.hours < facts.rated_hours_h) {
+    notes.push(
+      `a settled cycle gives ${discharge.hours.toFixed(1)} h at rated power, less than the rated ${facts.rated_hours_h} h (ended by ${discharge.ends_by})`,
+    );
+  }
+  if (charge.ends_by === 'empty' || charge.ends_by === 'time') {
+    notes.push(
+      `the charge of the settled cycle ended by ${charge.ends_by}, not by a store being full`,
+    );
+  }
+  return notes;
+}
+
+function storeNotes(
+  unit: UnitDefinition,
+  store: UnitDefinition['stores'][number],
+  facts: Omit<UnitFacts, 'missing' | 'notes'>,
+  s: number,
+): string[] {
+  const f = facts.stores[s]!;
+  const { bed } = store;
+  const notes: string[] = [];
+  const degC = (kelvin: number) => `${(kelvin - ZERO_CELSIUS_K).toFixed(0)} degC`;
+  if (f.dew_point_degC !== null && f.coldest_degC - f.dew_point_degC < DEW_MARGIN_K) {
+    notes.push(
+      `HAZARD: the gas in ${f.id} comes within ${(f.coldest_degC - f.dew_point_degC).toFixed(0)} K of its dew point`,
+    );
+  }
+  if (f.thermocouples_per_front < FEW_PER_FRONT) {
+    notes.push(
+      `${f.id}: ${f.thermocouples_per_front.toFixed(1)} thermocouples per front tell where it is, but hardly how wide`,
+    );
+  }
+  if (!f.correlation_covers) {
+    notes.push(
+      `${f.id}: Re ${f.reynolds.toFixed(1)} is outside the measured range of the heat-transfer correlation (15 to 8500): tune factors.heat_transfer`,
+    );
+  }
+  for (const [what, range] of [
+    [bed.solid.name, bed.solid.range_K],
+    [bed.fluid.name, bed.fluid.range_K],
+  ] as const) {
+    const low = f.coldest_degC + ZERO_CELSIUS_K;
+    if (low < range[0] - 0.5 || store.reference_hot_K > range[1] + 0.5) {
+      notes.push(
+        `${f.id}: the data of ${what} cover ${degC(range[0])} to ${degC(range[1])}, the store runs from ${degC(low)} to ${degC(store.reference_hot_K)}`,
+      );
+    }
+  }
+  const limit = unit.limits.pressure_drop_max_Pa;
+  const drop_kPa = Math.max(f.pressure_drop_charged_kPa, f.pressure_drop_discharged_kPa);
+  if (limit !== null && drop_kPa * 1e3 > limit) {
+    notes.push(
+      `${f.id}: ${drop_kPa.toFixed(2)} kPa at rated flow exceed limits.pressure_drop_max_kPa (${limit / 1e3})`,
+    );
+  }
+  const charged_K = store.kind === 'hot' ? store.reference_hot_K : store.reference_cold_K;
+  const sent = store.kind === 'hot' ? facts.charge.hot_inlet_degC : facts.charge.cold_inlet_degC;
+  const span = store.reference_hot_K - store.reference_cold_K;
+  if (sent !== null && Math.abs(sent + ZERO_CELSIUS_K - charged_K) > REFERENCE_SHARE * span) {
+    notes.push(
+      `${f.id}: the machine charges with ${sent.toFixed(0)} degC, its reference for charged is ${degC(charged_K)}`,
+    );
+  }
+  return notes;
+}
