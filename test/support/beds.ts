@@ -13,13 +13,13 @@ export const meierRock = solidFromPolynomial({
   emissivity: 0.85,
 });
 
-/** Air at 773.15 K and 1 atm with the figures of the hand case (CoolProp 8.0.0). */
+/** Air at 773.15 K and 1 atm as in fixtures/gas_property_check_values_coolprop.csv, unrounded. */
 export const handAir = liquidOf({
   name: 'air at 773.15 K, constant',
-  density_kg_m3: 0.4564,
-  heat_capacity_J_kgK: 1092.4,
-  viscosity_Pa_s: 3.653e-5,
-  conductivity_W_mK: 0.0558,
+  density_kg_m3: 0.45639,
+  heat_capacity_J_kgK: 1092.426,
+  viscosity_Pa_s: 3.65305e-5,
+  conductivity_W_mK: 0.0557953,
 });
 
 /** The bed of Meier 1991 with factors of 1 and no losses; tests override what they are about. */

@@ -16,6 +16,9 @@ export type ThermocoupleReason = (typeof THERMOCOUPLE_REASONS)[number];
 /** Range [degC] that a reference junction can have; beyond it the junction's own sensor is at fault. */
 const COLD_JUNCTION_RANGE = [-50, 100] as const;
 
+/** A voltage this little beyond an end [mV] is the end: rounding of the polynomial, 1e-6 K at most. */
+const END_ROUNDING_mV = 1e-9;
+
 function pieceAt(type: ThermocoupleType, celsius: number): ReferencePiece {
   const { reference } = THERMOCOUPLE_TABLES[type];
   const first = reference[0] as ReferencePiece;
@@ -93,8 +96,8 @@ export function celsiusFromCompensated(
 ): number | ThermocoupleReason {
   if (!Number.isFinite(millivolt)) return 'not_a_number';
   let [low, high] = thermocoupleRange_degC(type);
-  if (millivolt < voltageIn(pieceAt(type, low), low)) return 'below_range';
-  if (millivolt > voltageIn(pieceAt(type, high), high)) return 'above_range';
+  if (millivolt < voltageIn(pieceAt(type, low), low) - END_ROUNDING_mV) return 'below_range';
+  if (millivolt > voltageIn(pieceAt(type, high), high) + END_ROUNDING_mV) return 'above_range';
   let T = Math.min(Math.max(approximateInverse(type, millivolt), low), high);
   for (let i = 0; i < 60; i++) {
     const piece = pieceAt(type, T);
