@@ -140,13 +140,19 @@ export function withoutCredentials(text: string): string {
   return text.replace(/([a-z][a-z0-9+.-]*:\/\/)[^\s/@]+@/gi, '$1***@');
 }
 
-/** The one message a user sees of a failure: no stack, no credentials. */
+/** Without control characters other than line ends: a file must not write on the terminal. */
+export function withoutControls(text: string): string {
+  return text.replace(/(?!\n)\p{Cc}/gu, ' ');
+}
+
+/** The one message a user sees of a failure: no stack, no credentials, no control characters. */
 export function explain(thrown: unknown): string {
   const error =
     thrown instanceof RockhourError
       ? thrown
       : new RockhourError('INTERNAL', reasonOf(thrown), { cause: thrown });
-  return withoutCredentials(`rockhour: ${error.message}\n${error.advice} [${error.code}]`);
+  const text = `rockhour: ${error.message}\n${error.advice} [${error.code}]`;
+  return withoutControls(withoutCredentials(text));
 }
 
 export function exitCodeOf(thrown: unknown): number {

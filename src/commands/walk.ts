@@ -2,6 +2,7 @@ import { statSync } from 'node:fs';
 import { RecordingReader } from '../adapters/recording/reader.js';
 import type { UnitDefinition } from '../core/definitions.js';
 import type { Scan } from '../core/scan/scan.js';
+import { withoutControls } from '../errors.js';
 import { startProgress } from './progress.js';
 
 /** The file's size for the progress bar; a file that cannot be read is told by the reader. */
@@ -57,5 +58,5 @@ export function tellCounts(reader: RecordingReader): string[] {
   if (counts.absentChannels.length > 0) {
     lines.push(`channels without a column, taken as missing: ${counts.absentChannels.join(', ')}`);
   }
-  return lines;
+  return lines.map(withoutControls);
 }
