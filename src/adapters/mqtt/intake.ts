@@ -2,6 +2,7 @@ import type { ChannelSource } from '../../config/site.js';
 import type { UnitDefinition } from '../../core/definitions.js';
 import type { Delivery } from './link.js';
 import {
+  makeRoute,
   PAYLOAD_FAULTS,
   type PayloadFault,
   type PayloadReading,
@@ -86,7 +87,7 @@ export class Intake {
         return channel;
       });
       const routes = this.routes.get(source.topic) ?? [];
-      this.routes.set(source.topic, [...routes, { source, channels: defined }]);
+      this.routes.set(source.topic, [...routes, makeRoute(source, defined)]);
     }
   }
 

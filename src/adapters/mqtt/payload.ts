@@ -1,7 +1,7 @@
 import type { ChannelSource } from '../../config/site.js';
 import type { ChannelDefinition } from '../../core/definitions.js';
+import { rawToSi } from '../../core/scan/convert.js';
 import { modeOfWord, openingOfWord } from '../../core/scan/words.js';
-import { toSi } from '../../core/units.js';
 import { sourceTime } from './time.js';
 
 /** What can be wrong with a message or a part of it; the names are also those of the counters. */
@@ -34,7 +34,17 @@ export interface PayloadReading {
 /** A source with the definitions of its channels, in its order. */
 export interface Route {
   readonly source: ChannelSource;
-  readonly channels: readonly ChannelDefinition[];
+  readonly channels: readonly RoutedChannel[];
+}
+
+interface RoutedChannel {
+  readonly definition: ChannelDefinition;
+  readonly toSi: (raw: number) => number;
+}
+
+export function makeRoute(source: ChannelSource, channels: readonly ChannelDefinition[]): Route {
+  const routed = channels.map((definition) => ({ definition, toSi: rawToSi(definition) }));
+  return { source, channels: routed };
 }
 
 /**
@@ -68,8 +78,9 @@ export function parsePayload(
   const time_ms = message.time === undefined ? arrival_ms : sourceTime(message.time);
   if (Number.isNaN(time_ms)) return refuse(fault, 'malformed');
   if (message.time === undefined) fault('without_time');
-  return route.channels.map((channel, i) => {
-    const value = numberOf(channel, values[i]);
+  return route.channels.map((routed, i) => {
+    const channel = routed.definition;
+    const value = numberOf(routed, values[i]);
     const stated = qualityOf(perEntry ? quality[i] : quality);
     if (stated === null) fault('unknown_quality');
     if (value === null) fault(values[i] === null ? 'missing_value' : 'bad_element');
@@ -105,20 +116,19 @@ function valuesOf(route: Route, message: Record<string, unknown>): readonly unkn
 }
 
 /** A raw value in SI, null where it is no value of this channel. */
-function numberOf(channel: ChannelDefinition, raw: unknown): number | null {
-  const { kind } = channel.role;
-  if (kind === 'mode') {
-    const mode = typeof raw === 'string' ? modeOfWord(raw) : raw;
-    return mode === 1 || mode === 0 || mode === -1 ? mode : null;
-  }
-  if (kind === 'valve' && (typeof raw === 'string' || typeof raw === 'boolean')) {
-    const opening = openingOfWord(String(raw));
-    return Number.isNaN(opening) ? null : opening;
-  }
+function numberOf({ definition, toSi }: RoutedChannel, raw: unknown): number | null {
+  const { kind } = definition.role;
+  const si = typeof raw === 'number' ? toSi(raw) : wordOf(kind, raw);
   // JSON has no NaN, but 1e999 is an infinity.
-  if (typeof raw !== 'number' || !Number.isFinite(raw)) return null;
-  const si = kind === 'valve' && channel.raw_unit !== '%' ? raw : toSi(channel.raw_unit, raw);
   return Number.isFinite(si) ? si : null;
+}
+
+function wordOf(kind: ChannelDefinition['role']['kind'], raw: unknown): number {
+  if (kind === 'mode' && typeof raw === 'string') return modeOfWord(raw);
+  if (kind === 'valve' && (typeof raw === 'string' || typeof raw === 'boolean')) {
+    return openingOfWord(String(raw));
+  }
+  return Number.NaN;
 }
 
 function qualityOf(quality: unknown): Quality | null {

@@ -1,6 +1,7 @@
 import fc from 'fast-check';
 import { describe, expect, it } from 'vitest';
 import {
+  makeRoute,
   type PayloadFault,
   type PayloadReading,
   parsePayload,
@@ -16,7 +17,7 @@ function channel(id: string, role: ChannelRole, raw_unit = 'K'): ChannelDefiniti
 
 function route(payload: 'value' | 'array', ...channels: ChannelDefinition[]): Route {
   const ids = channels.map(({ id }) => id);
-  return { source: { unit: 'u', topic: 't', payload, channels: ids }, channels };
+  return makeRoute({ unit: 'u', topic: 't', payload, channels: ids }, channels);
 }
 
 const ambient: ChannelRole = { kind: 'ambient_temperature' };

@@ -1,0 +1,79 @@
+import { createHash } from 'node:crypto';
+import { deserialize, serialize } from 'node:v8';
+import type { UnitDefinition } from '../../core/definitions.js';
+import type { Database } from './database.js';
+
+/** Newest checkpoints kept of each unit. */
+const KEEP = 3;
+
+export interface Checkpoint {
+  readonly unit: string;
+  /** Source time of the last scan taken in [ms]. */
+  readonly time_ms: number;
+  /** Last journal entry taken in. */
+  readonly journal_seq: number;
+  /** What was saved; structured-cloneable. */
+  readonly image: unknown;
+}
+
+/**
+ * A short print of a unit's definition: a state saved under another one may not fit. Functions
+ * (material laws) do not print, their names and tables do.
+ */
+export function fingerprint(unit: UnitDefinition): string {
+  return createHash('sha256').update(JSON.stringify(unit)).digest('hex').slice(0, 16);
+}
+
+/** Saved states of units, as Node's structured clone format in a blob. */
+export class Checkpoints {
+  constructor(private readonly database: Database) {}
+
+  add(unit: UnitDefinition, checkpoint: Omit<Checkpoint, 'unit'>): void {
+    const { time_ms, journal_seq, image } = checkpoint;
+    this.database.transaction(() => {
+      this.database
+        .prepare(
+          `INSERT OR REPLACE INTO checkpoints (unit, time, journal_seq, fingerprint, image)
+           VALUES (?, ?, ?, ?, ?)`,
+        )
+        .run(unit.id, time_ms, journal_seq, fingerprint(unit), serialize(image));
+      this.database
+        .prepare(
+          `DELETE FROM checkpoints WHERE unit = ? AND time NOT IN
+             (SELECT time FROM checkpoints WHERE unit = ? ORDER BY journal_seq DESC LIMIT ${KEEP})`,
+        )
+        .run(unit.id, unit.id);
+    })();
+  }
+
+  /** Checkpoints of a unit, newest first, without those of another definition of it. */
+  list(unit: UnitDefinition): Checkpoint[] {
+    const rows = this.database
+      .prepare(
+        `SELECT time, journal_seq, image FROM checkpoints WHERE unit = ? AND fingerprint = ?
+         ORDER BY journal_seq DESC`,
+      )
+      .all(unit.id, fingerprint(unit)) as { time: number; journal_seq: number; image: Buffer }[];
+    return rows.map((row) => ({
+      unit: unit.id,
+      time_ms: row.time,
+      journal_seq: row.journal_seq,
+      image: deserialize(row.image),
+    }));
+  }
+
+  /** True where the unit has checkpoints, though perhaps of another definition. */
+  hasAny(unit: string): boolean {
+    return (
+      this.database.prepare('SELECT 1 FROM checkpoints WHERE unit = ?').get(unit) !== undefined
+    );
+  }
+
+  /** Journal entries up to this number are in the oldest checkpoint of every unit; 0 if one has none. */
+  coveredSeq(units: readonly string[]): number {
+    const oldest = this.database
+      .prepare('SELECT min(journal_seq) FROM checkpoints WHERE unit = ?')
+      .pluck();
+    return Math.min(...units.map((unit) => (oldest.get(unit) as number | null) ?? 0));
+  }
+}

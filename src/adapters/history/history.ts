@@ -1,0 +1,83 @@
+import type { StoreConfig } from '../../config/site.js';
+import { Checkpoints } from './checkpoints.js';
+import { type Database, openDatabase, storeFailure } from './database.js';
+import { Estimates } from './estimates.js';
+import { Events } from './events.js';
+import { Outbox } from './outbox.js';
+import { applyRetention, type RetentionCounts } from './retention.js';
+import { HISTORY_SCHEMA } from './schema.js';
+import { Sequence } from './sequence.js';
+
+/**
+ * The local history: one SQLite file with estimates, dispatch answers, profiles, events, what
+ * stands, checkpoints and the forwarder's cursor. A power cut may undo the last moments of it,
+ * checkpoints included, as a whole: the journal, which is synced, makes them again.
+ */
+export class History {
+  private opened: {
+    readonly database: Database;
+    readonly estimates: Estimates;
+    readonly events: Events;
+    readonly checkpoints: Checkpoints;
+    readonly outbox: Outbox;
+  } | null = null;
+
+  constructor(
+    private readonly file: string,
+    private readonly store: StoreConfig,
+  ) {}
+
+  /** @throws RockhourError STORE_FAILED */
+  start(): void {
+    if (this.opened) return;
+    const database = openDatabase(this.file, 'normal', HISTORY_SCHEMA);
+    const sequence = new Sequence(database);
+    this.opened = {
+      database,
+      estimates: new Estimates(database, sequence),
+      events: new Events(database, sequence),
+      checkpoints: new Checkpoints(database),
+      outbox: new Outbox(database),
+    };
+  }
+
+  stop(): void {
+    this.opened?.database.close();
+    this.opened = null;
+  }
+
+  get estimates(): Estimates {
+    return this.parts.estimates;
+  }
+  get events(): Events {
+    return this.parts.events;
+  }
+  get checkpoints(): Checkpoints {
+    return this.parts.checkpoints;
+  }
+  get outbox(): Outbox {
+    return this.parts.outbox;
+  }
+
+  /** Runs `write` in one transaction; SQLite's failures become errors of the catalogue. */
+  write<T>(write: () => T): T {
+    try {
+      return this.parts.database.transaction(write)();
+    } catch (thrown) {
+      if (thrown instanceof Error && 'code' in thrown && String(thrown.code).startsWith('SQLITE')) {
+        throw storeFailure(`writing to the history ${this.file}`, thrown);
+      }
+      throw thrown;
+    }
+  }
+
+  /** See applyRetention. */
+  retain(now_ms: number, forwarded: number): RetentionCounts {
+    return this.write(() => applyRetention(this.parts.database, this.store, now_ms, forwarded));
+  }
+
+  private get parts(): NonNullable<History['opened']> {
+    if (!this.opened) throw new RangeError('history must be started, got one that is not');
+    return this.opened;
+  }
+}

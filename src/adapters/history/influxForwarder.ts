@@ -1,0 +1,214 @@
+import { InfluxDB, type IPoint, type IPoolOptions } from 'influx';
+import type { InfluxConfig } from '../../config/site.js';
+import { reasonOf, withoutCredentials } from '../../errors.js';
+import { pointsOf } from './influxPoints.js';
+import type { Outbox } from './outbox.js';
+
+export const FORWARDER_COUNTS = [
+  'influx_points',
+  'influx_failures',
+  /** Points that InfluxDB refuses for good (400): left out, so that the rest can go on. */
+  'influx_set_aside',
+] as const;
+export type ForwarderCount = (typeof FORWARDER_COUNTS)[number];
+
+export interface ForwarderOptions {
+  readonly config: InfluxConfig;
+  readonly outbox: () => Outbox;
+  count(name: ForwarderCount, by: number): void;
+  /** Cannot be written to, and why: once per outage. */
+  down(reason: string): void;
+  up(): void;
+  /** Points that were set aside, and what InfluxDB said. */
+  refused(reason: string): void;
+}
+
+/** A hung server is given up after this [ms]; the write may still be applied, and is repeated. */
+const REQUEST_TIMEOUT_MS = 5000;
+/** Pause between looks at an empty outbox, and the shortest and longest after a failure [ms]. */
+const IDLE_MS = 500;
+const RETRY_LEAST_MS = 500;
+const RETRY_MOST_MS = 30_000;
+/** Items read at a time; an estimate becomes some twenty points. */
+const ITEMS = 500;
+
+/** With one host the client's own back-off only refuses without asking, and its timer outlives us. */
+const NO_BACKOFF = { getDelay: () => 0, next: () => NO_BACKOFF, reset: () => NO_BACKOFF };
+
+/**
+ * Copies the history to InfluxDB 1.x, in order, at least once, behind a cursor in SQLite. Same
+ * series and timestamp overwrite, so a repeated write changes nothing. Retried: no connection, no
+ * answer, 5xx, a login that is refused. Set aside: what InfluxDB calls a bad request. On 404 the
+ * database is created.
+ */
+export class InfluxForwarder {
+  private influx: InfluxDB | null = null;
+  private timer: NodeJS.Timeout | null = null;
+  private round: Promise<void> = Promise.resolve();
+  private retry_ms = RETRY_LEAST_MS;
+  private reason: string | null = null;
+  private hasWritten = false;
+
+  constructor(private readonly options: ForwarderOptions) {}
+
+  /** Why nothing can be written now, null while all is well. */
+  get trouble(): string | null {
+    return this.reason;
+  }
+
+  /** False before the first successful write or ping. */
+  get proven(): boolean {
+    return this.hasWritten;
+  }
+
+  start(): void {
+    if (this.influx) return;
+    this.influx = makeClient(this.options.config);
+    this.schedule(0);
+  }
+
+  /** Lets a write under way end, but does not wait long for it: it will be repeated. */
+  async stop(): Promise<void> {
+    if (this.timer) clearTimeout(this.timer);
+    this.timer = null;
+    this.influx = null;
+    let limit: NodeJS.Timeout | undefined;
+    const inTime = new Promise<void>((resolve) => {
+      limit = setTimeout(resolve, 1000);
+    });
+    await Promise.race([this.round, inTime]);
+    clearTimeout(limit);
+  }
+
+  private schedule(delay_ms: number): void {
+    if (!this.influx) return;
+    this.timer = setTimeout(() => {
+      this.round = this.run();
+    }, delay_ms);
+  }
+
+  private async run(): Promise<void> {
+    const { influx } = this;
+    if (!influx) return;
+    try {
+      const more = await this.forward(influx);
+      if (this.influx !== influx) return;
+      this.succeeded();
+      this.schedule(more ? 0 : IDLE_MS);
+    } catch (thrown) {
+      if (this.influx !== influx) return;
+      this.failed(reasonOf(thrown));
+      this.schedule(this.retry_ms);
+      this.retry_ms = Math.min(RETRY_MOST_MS, this.retry_ms * 2);
+    }
+  }
+
+  /** Writes one batch; true where more may wait. */
+  private async forward(influx: InfluxDB): Promise<boolean> {
+    const outbox = this.options.outbox();
+    const items = outbox.read(ITEMS);
+    if (items.length === 0) {
+      // With nothing to write an outage would go unseen, and a first start unproven.
+      if (!this.hasWritten || this.reason !== null) await ping(influx);
+      return false;
+    }
+    let points: IPoint[] = [];
+    let seq = outbox.cursor;
+    for (const item of items) {
+      const next = pointsOf(item);
+      if (points.length > 0 && points.length + next.length > this.options.config.batch_points) {
+        break;
+      }
+      points.push(...next);
+      seq = item.seq;
+    }
+    points = await this.write(influx, points);
+    // Stopped meanwhile, the outbox may be closed: the batch is repeated after the next start.
+    if (this.influx !== influx) return false;
+    outbox.moveTo(seq);
+    this.options.count('influx_points', points.length);
+    return true;
+  }
+
+  /** @returns the points that were written; the others were refused for good */
+  private async write(influx: InfluxDB, points: IPoint[]): Promise<IPoint[]> {
+    if (points.length === 0) return points;
+    try {
+      await influx.writePoints(points, { precision: 'ms' });
+      return points;
+    } catch (thrown) {
+      const status = statusOf(thrown);
+      if (status === 404) {
+        await influx.createDatabase(this.options.config.database);
+        await influx.writePoints(points, { precision: 'ms' });
+        return points;
+      }
+      if (status !== 400) throw thrown;
+      return this.halve(influx, points, reasonOf(thrown));
+    }
+  }
+
+  /** Finds the points that are refused by halving the batch, and leaves out those alone. */
+  private async halve(influx: InfluxDB, points: IPoint[], reason: string): Promise<IPoint[]> {
+    if (points.length === 1) {
+      this.options.count('influx_set_aside', 1);
+      this.options.refused(withoutCredentials(reason));
+      return [];
+    }
+    const middle = points.length >> 1;
+    return [
+      ...(await this.write(influx, points.slice(0, middle))),
+      ...(await this.write(influx, points.slice(middle))),
+    ];
+  }
+
+  private succeeded(): void {
+    this.hasWritten = true;
+    this.retry_ms = RETRY_LEAST_MS;
+    if (this.reason === null) return;
+    this.reason = null;
+    this.options.up();
+  }
+
+  private failed(reason: string): void {
+    this.options.count('influx_failures', 1);
+    const isNew = this.reason === null;
+    this.reason = withoutCredentials(reason);
+    if (isNew) this.options.down(this.reason);
+  }
+}
+
+async function ping(influx: InfluxDB): Promise<void> {
+  const [host] = await influx.ping(REQUEST_TIMEOUT_MS);
+  if (!host?.online) throw new Error('no answer to a ping');
+}
+
+function makeClient(config: InfluxConfig): InfluxDB {
+  const url = new URL(config.url);
+  const isSecure = url.protocol === 'https:';
+  const pool: IPoolOptions = {
+    maxRetries: 0,
+    requestTimeout: REQUEST_TIMEOUT_MS,
+    backoff: NO_BACKOFF,
+  };
+  return new InfluxDB({
+    database: config.database,
+    hosts: [
+      {
+        host: url.hostname,
+        port: Number(url.port || (isSecure ? 443 : 80)),
+        protocol: isSecure ? 'https' : 'http',
+        ...(url.pathname === '/' ? {} : { path: url.pathname }),
+      },
+    ],
+    ...(config.username === null ? {} : { username: config.username }),
+    ...(config.password === null ? {} : { password: config.password }),
+    pool,
+  });
+}
+
+/** The HTTP status in an error of the client, which is circular: nothing else of it is touched. */
+function statusOf(thrown: unknown): number | null {
+  const { res } = thrown as { res?: { statusCode?: number } };
+  return res?.statusCode ?? null;
+}

@@ -1,0 +1,77 @@
+import type { StoreConfig } from '../../config/site.js';
+import type { Database } from './database.js';
+
+const DAY_MS = 86_400_000;
+/** Most source time thinned in one go [ms]: a day of 30 s scans takes some 20 ms. */
+const STEP_MS = DAY_MS;
+
+export interface RetentionCounts {
+  readonly estimates: number;
+  readonly events: number;
+  /** Deleted although the time-series database had not yet taken them over. */
+  readonly not_forwarded: number;
+}
+
+/**
+ * Deletes what is older than the configuration keeps, and thins estimates to one (the last) per
+ * `thin_to_s` once they are older than `thin_after_days`. Times are source times against `now_ms`.
+ * What is still due to the time-series database is not thinned, but it does not outlive its
+ * retention either: the disk must not fill because that database is gone.
+ * @param forwarded cursor of the forwarder, Infinity where there is none
+ */
+export function applyRetention(
+  database: Database,
+  store: StoreConfig,
+  now_ms: number,
+  forwarded: number,
+): RetentionCounts {
+  return database.transaction(() => {
+    const end = now_ms - store.keep_estimates_days * DAY_MS;
+    const limit = Math.min(forwarded, Number.MAX_SAFE_INTEGER);
+    const not_forwarded = database
+      .prepare('SELECT count(*) FROM estimates WHERE time < ? AND seq > ?')
+      .pluck()
+      .get(end, limit) as number;
+    let estimates = remove(database, 'estimates', end);
+    for (const table of ['dispatch', 'profiles']) remove(database, table, end);
+    const events = remove(database, 'events', end);
+    estimates += thinEstimates(database, store, now_ms, limit);
+    return { estimates, events, not_forwarded };
+  })();
+}
+
+function remove(database: Database, table: string, end_ms: number): number {
+  return database.prepare(`DELETE FROM ${table} WHERE time < ?`).run(end_ms).changes;
+}
+
+function thinEstimates(
+  database: Database,
+  store: StoreConfig,
+  now_ms: number,
+  limit: number,
+): number {
+  const width_ms = Math.round(store.thin_to_s * 1000);
+  const wanted = now_ms - store.thin_after_days * DAY_MS;
+  const end = Math.floor(wanted / width_ms) * width_ms;
+  const reached = database.prepare("SELECT value FROM cursors WHERE name = 'thinned'").pluck();
+  const oldest = database.prepare('SELECT min(time) FROM estimates').pluck().get() as number | null;
+  if (oldest === null) return 0;
+  const from = Math.max((reached.get() as number | undefined) ?? oldest, oldest);
+  const start = Math.floor(from / width_ms) * width_ms;
+  const to = Math.min(end, start + Math.max(width_ms, Math.floor(STEP_MS / width_ms) * width_ms));
+  if (to <= start) return 0;
+  const span = { start, to, width: width_ms, limit };
+  const waiting = database
+    .prepare('SELECT 1 FROM estimates WHERE time >= @start AND time < @to AND seq > @limit')
+    .get(span);
+  if (waiting) return 0;
+  const { changes } = database
+    .prepare(
+      `DELETE FROM estimates WHERE time >= @start AND time < @to AND seq NOT IN (
+         SELECT seq FROM (SELECT seq, max(time) FROM estimates WHERE time >= @start AND time < @to
+           GROUP BY unit, (time - @start) / @width))`,
+    )
+    .run(span);
+  database.prepare("INSERT OR REPLACE INTO cursors (name, value) VALUES ('thinned', ?)").run(to);
+  return changes;
+}
