@@ -1,5 +1,6 @@
 import { readFileSync } from 'node:fs';
 import { Command, CommanderError } from 'commander';
+import { register as registerCheck } from './commands/check.js';
 import { closingHelp } from './commands/help.js';
 import { register as registerHours } from './commands/hours.js';
 import { register as registerReplay } from './commands/replay.js';
@@ -24,7 +25,7 @@ function createProgram(): Command {
     .addHelpText('after', closingHelp())
     .showSuggestionAfterError()
     .exitOverride();
-  for (const register of [registerReplay, registerHours]) register(program);
+  for (const register of [registerReplay, registerHours, registerCheck]) register(program);
   for (const command of program.commands) command.exitOverride();
   return program;
 }

@@ -1,6 +1,7 @@
 import type { Command } from 'commander';
 import type { DispatchAnswer, Quality } from '../core/estimate.js';
-import { advance, hoursAt, startUnit, type UnitStep } from '../core/unit.js';
+import type { Scan } from '../core/scan/scan.js';
+import { advance, startUnit } from '../core/unit.js';
 import { RockhourError } from '../errors.js';
 import { askDaemon } from './daemonAnswer.js';
 import { loadUnit } from './site.js';
@@ -36,38 +37,46 @@ async function fromRecording(options: HoursOptions): Promise<HoursAnswer> {
   const powers_W = parsePowers_W('--power', options.power);
   const at_ms = options.at === undefined ? null : parsePoint_ms('--at', options.at);
   const { unit, otherChannels } = loadUnit(config, options.unit);
-  // Asked once, at the end: on the way the unit asks nothing by itself.
-  const quiet = { ...unit, hours_at_W: [] };
-  const state = startUnit(quiet);
-  let last: UnitStep | null = null;
-  let first_ms: number | null = null;
-  const reader = await walkRecording(recording, quiet, otherChannels, (scan) => {
-    first_ms ??= scan.time_ms;
+  const state = startUnit(unit);
+  // The newest scan waits until it is known whether it is the last: hours belong to that one.
+  let waiting: Scan | null = null;
+  let begins_ms: number | null = null;
+  const reader = await walkRecording(recording, unit, otherChannels, (scan) => {
+    begins_ms ??= scan.time_ms;
     if (at_ms !== null && scan.time_ms > at_ms) return false;
-    last = advance(quiet, state, scan, { hours_at_W: [], profile: false });
+    if (waiting !== null) advance(unit, state, waiting, { hours_at_W: [], profile: false });
+    waiting = scan;
     return true;
   });
   for (const line of tellCounts(reader)) process.stderr.write(`${line}\n`);
   // Widened again: the compiler does not see the assignments inside the visit.
-  const step = last as UnitStep | null;
-  if (step === null) {
-    if (first_ms === null) {
-      throw new RockhourError('RECORDING_MALFORMED', `${recording} has a header but no rows`, {
-        advice: 'Hours need at least one scan.',
-      });
-    }
-    const begins = new Date(first_ms).toISOString();
-    throw new RockhourError('USAGE', `--at is ${options.at}, but ${recording} begins at ${begins}`);
-  }
-  const { time, quality, state_of_charge } = step.estimate;
+  const last = waiting as Scan | null;
+  if (last === null) throw nothingBefore(recording, options.at, begins_ms);
+  const { estimate } = advance(unit, state, last, { hours_at_W: powers_W, profile: false });
   return {
     unit: unit.id,
-    time,
-    age_s: at_ms === null ? 0 : (at_ms - Date.parse(time)) / 1000,
-    quality,
-    state_of_charge,
-    answers: hoursAt(unit, state, powers_W),
+    time: estimate.time,
+    age_s: at_ms === null ? 0 : (at_ms - last.time_ms) / 1000,
+    quality: estimate.quality,
+    state_of_charge: estimate.state_of_charge,
+    answers: estimate.dispatch ?? [],
   };
+}
+
+function nothingBefore(
+  recording: string,
+  at: string | undefined,
+  begins_ms: number | null,
+): RockhourError {
+  if (begins_ms === null) {
+    return new RockhourError('RECORDING_MALFORMED', `${recording} has a header but no rows`, {
+      advice: 'Hours need at least one scan.',
+    });
+  }
+  const begins = new Date(begins_ms).toISOString();
+  return new RockhourError('USAGE', `--at is ${at}, but ${recording} begins at ${begins}`, {
+    advice: 'Name a time within the recording.',
+  });
 }
 
 async function onlyUnitOf(url: string): Promise<string> {

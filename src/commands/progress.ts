@@ -1,4 +1,4 @@
-import { Format, SingleBar } from 'cli-progress';
+import cliProgress from 'cli-progress';
 
 export interface Progress {
   update(done: number): void;
@@ -13,13 +13,13 @@ const SILENT: Progress = { update: () => undefined, stop: () => undefined };
  */
 export function startProgress(label: string, total: number): Progress {
   if (!process.stderr.isTTY || !(total > 0)) return SILENT;
-  const bar = new SingleBar({
+  const bar = new cliProgress.SingleBar({
     stream: process.stderr,
     // Left visible: after an interrupt nothing has to be put back.
     hideCursor: false,
     etaBuffer: 100,
     format: (options, params) => {
-      const { BarFormat: drawn, TimeFormat: time } = Format;
+      const { BarFormat: drawn, TimeFormat: time } = cliProgress.Format;
       const percent = Math.floor(params.progress * 100);
       const elapsed_s = Math.round((Date.now() - params.startTime) / 1000);
       return `${label} ${drawn(params.progress, options)} ${percent} %, ${time(elapsed_s, options, 1)}, ${time(params.eta, options, 1)} to go`;

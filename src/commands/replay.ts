@@ -2,7 +2,7 @@ import { resolve } from 'node:path';
 import type { Command } from 'commander';
 import { JsonLinesWriter } from '../adapters/recording/lines.js';
 import type { UnitDefinition } from '../core/definitions.js';
-import { advance, startUnit } from '../core/unit.js';
+import { advance, hoursDue, startUnit } from '../core/unit.js';
 import { RockhourError } from '../errors.js';
 import { replayLine } from './replayLine.js';
 import { loadUnit } from './site.js';
@@ -19,34 +19,28 @@ interface ReplayOptions {
   readonly json?: boolean;
 }
 
-/** Says at which scans which powers are asked for: at the first, then once per interval. */
+/**
+ * Says at which scans which powers are asked for: at the first, then once per interval. Without
+ * options it is what the daemon asks by itself.
+ */
 function asker(unit: UnitDefinition, options: ReplayOptions) {
-  if (options.hoursAt === undefined && options.hoursEvery === undefined) {
-    return { unit, powersFor: () => [] };
-  }
-  const powers_W =
-    options.hoursAt === undefined ? unit.hours_at_W : parsePowers_W('--hours-at', options.hoursAt);
-  if (powers_W.length === 0) {
+  const { hoursAt, hoursEvery } = options;
+  const powers_W = hoursAt === undefined ? unit.hours_at_W : parsePowers_W('--hours-at', hoursAt);
+  if (hoursEvery !== undefined && powers_W.length === 0) {
     throw new RockhourError(
       'USAGE',
-      `unit ${unit.id} has no hours_at, so --hours-every needs --hours-at`,
+      `unit ${unit.id} has no powers for its hours, so --hours-every needs --hours-at`,
     );
   }
-  const every_ms =
-    1000 *
-    (options.hoursEvery === undefined
-      ? unit.hours_every_s
-      : parseDuration_s('--hours-every', options.hoursEvery));
-  let last = Number.NaN;
-  return {
-    // The command decides alone: the unit's own clock for hours asks nothing.
-    unit: { ...unit, hours_at_W: [] },
-    powersFor: (time_ms: number) => {
-      const interval = Math.floor(time_ms / every_ms);
-      if (interval === last) return [];
-      last = interval;
-      return powers_W;
-    },
+  const clock =
+    hoursEvery === undefined
+      ? unit
+      : { ...unit, hours_every_s: parseDuration_s('--hours-every', hoursEvery) };
+  let last_ms: number | null = null;
+  return (time_ms: number): readonly number[] => {
+    const due = hoursDue(clock, last_ms, time_ms);
+    last_ms = time_ms;
+    return due ? powers_W : [];
   };
 }
 
@@ -90,8 +84,8 @@ async function replay(options: ReplayOptions): Promise<void> {
   if (options.json && options.out === '-') {
     throw new RockhourError('USAGE', '--json and --out - would both write to standard output');
   }
-  const loaded = loadUnit(options.config, options.unit);
-  const { unit, powersFor } = asker(loaded.unit, options);
+  const { unit, otherChannels } = loadUnit(options.config, options.unit);
+  const powersFor = asker(unit, options);
   const summary: Summary = {
     unit: unit.id,
     rows: 0,
@@ -107,7 +101,7 @@ async function replay(options: ReplayOptions): Promise<void> {
   const state = startUnit(unit);
   const writer = new JsonLinesWriter(options.out);
   try {
-    const reader = await walkRecording(options.recording, unit, loaded.otherChannels, (scan) => {
+    const reader = await walkRecording(options.recording, unit, otherChannels, (scan) => {
       const step = advance(unit, state, scan, {
         hours_at_W: powersFor(scan.time_ms),
         profile: false,
@@ -121,10 +115,12 @@ async function replay(options: ReplayOptions): Promise<void> {
     });
     summary.rows = reader.counts.rows;
     summary.notes = tellCounts(reader);
-  } finally {
-    // Also after a fault: the lines of the rows before it stay.
-    await writer.close();
+  } catch (fault) {
+    // The lines of the rows before it stay.
+    if (writer.lines > 0) await writer.close();
+    throw fault;
   }
+  await writer.close();
   summary.lines = writer.lines;
   summary.seconds = (performance.now() - started) / 1000;
   if (options.json) process.stdout.write(`${JSON.stringify(summary)}\n`);
@@ -139,8 +135,14 @@ export function register(program: Command): void {
     .requiredOption('--recording <file>', 'CSV after RFC 4180: a column time and one per channel')
     .requiredOption('--out <file>', 'JSON Lines to write, - for standard output')
     .option('--unit <id>', 'unit to run; needed where the site has several')
-    .option('--hours-at <MW>', 'powers for which hours are computed, such as 2,3')
-    .option('--hours-every <span>', 'how often, such as 30min (default: hours_every_s of the unit)')
+    .option(
+      '--hours-at <MW>',
+      'powers for which hours are computed, such as 2,3 (default: as configured)',
+    )
+    .option(
+      '--hours-every <span>',
+      'how often, such as 30min (default: as configured for the unit)',
+    )
     .option('--json', 'summary as one line of JSON on standard output')
     .action(replay);
 }

@@ -3,20 +3,19 @@ import { createWriteStream, type WriteStream } from 'node:fs';
 import { finished } from 'node:stream/promises';
 import { RockhourError, reasonOf } from '../../errors.js';
 
-/** Writes lines of text to a file, or to standard output for `-`, no faster than it takes them. */
+/**
+ * Writes lines of text to a file, or to standard output for `-`, no faster than it takes them. The
+ * file is touched only when the first lines go to it, so that a command that fails before leaves
+ * an older file as it was.
+ */
 export class LineWriter {
   lines = 0;
-  private readonly stream: WriteStream | NodeJS.WriteStream;
+  private stream: WriteStream | NodeJS.WriteStream | null = null;
   private failure: Error | null = null;
   private buffer: string[] = [];
   private buffered = 0;
 
-  constructor(private readonly path: string) {
-    this.stream = path === '-' ? process.stdout : createWriteStream(path);
-    this.stream.on('error', (error: Error) => {
-      this.failure ??= error;
-    });
-  }
+  constructor(private readonly path: string) {}
 
   /** Takes one line, without its line end. */
   async write(line: string): Promise<void> {
@@ -29,11 +28,22 @@ export class LineWriter {
   /** Hands everything over and closes the file; the lines are in it when this resolves. */
   async close(): Promise<void> {
     await this.flush();
-    if (this.stream === process.stdout) return;
-    this.stream.end();
-    // Its error is kept by the listener above and told here.
-    await finished(this.stream).catch(() => undefined);
+    const stream = this.open();
+    if (stream === process.stdout) return;
+    stream.end();
+    // Its error is kept by the listener and told here.
+    await finished(stream).catch(() => undefined);
     this.check();
+  }
+
+  private open(): WriteStream | NodeJS.WriteStream {
+    if (this.stream !== null) return this.stream;
+    const stream = this.path === '-' ? process.stdout : createWriteStream(this.path);
+    stream.on('error', (error: Error) => {
+      this.failure ??= error;
+    });
+    this.stream = stream;
+    return stream;
   }
 
   private async flush(): Promise<void> {
@@ -41,10 +51,10 @@ export class LineWriter {
     const text = this.buffer.join('');
     this.buffer = [];
     this.buffered = 0;
-    if (text !== '' && !this.stream.write(text)) {
-      await Promise.race([once(this.stream, 'drain'), once(this.stream, 'close')]).catch(
-        () => undefined,
-      );
+    if (text === '') return;
+    const stream = this.open();
+    if (!stream.write(text)) {
+      await Promise.race([once(stream, 'drain'), once(stream, 'close')]).catch(() => undefined);
     }
     this.check();
   }
