@@ -26,7 +26,8 @@ export interface FrontViewState {
   widthSquared: TrackedScalar | null;
   /** Scans in a row that contradict the prediction. */
   misses: number;
-  /** Counted: new starts from a fit after a jump, fronts dropped, widths held above zero. */
+  /** Counted: readings left out, new starts after a jump, fronts dropped, widths held above zero. */
+  leftOut: number;
   restarts: number;
   dropped: number;
   floored: number;
@@ -66,6 +67,7 @@ export function startFrontView(string: {
     position: null,
     widthSquared: null,
     misses: 0,
+    leftOut: 0,
     restarts: 0,
     dropped: 0,
     floored: 0,
@@ -117,6 +119,7 @@ export function stepFrontView(state: FrontViewState, input: FrontViewInput): Fro
   if (!Number.isFinite(input.spread_m2)) throw new RangeError(`spread_m2 is ${input.spread_m2}`);
 
   const fit = fitFront(input.readings, input.references);
+  if (fit.seen) state.leftOut += fit.left_out;
   if (state.position === null) {
     if (fit.seen) begin(state, fit);
     return publish(state, fit.seen ? null : fit.reason);

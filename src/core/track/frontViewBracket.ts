@@ -87,6 +87,7 @@ export function bracketFront(
     covariance,
     white: covariance.slice(),
     misfit: 1,
+    left_out: 0,
   };
 }
 

@@ -59,6 +59,8 @@ export interface FrontFit {
   readonly white: Float64Array;
   /** Sum of squared normalised residuals over degrees of freedom; near 1 for an erf front. */
   readonly misfit: number;
+  /** Readings left out because the others agree much better without them: 0 or 1. */
+  readonly left_out: 0 | 1;
 }
 
 export interface NoFrontFit {
@@ -68,6 +70,11 @@ export interface NoFrontFit {
 
 /** Sigma of the prior on each plateau, as a share of the range between the references. */
 const PLATEAU_PRIOR = 0.1;
+/** A fit whose squared residuals are this many times too large is tried without its worst reading, */
+const BAD_MISFIT = 4;
+/** and that is taken where it makes them smaller by this factor, with at least as many left. */
+const BETTER = 4;
+const LEAST_LEFT = 6;
 /** Below this share of the fitted step from a plateau, one half of the references is no crossing. */
 const NEAR_PLATEAU = 0.02;
 
@@ -81,7 +88,9 @@ const NEAR_PLATEAU = 0.02;
  * spacing to half the readings' reach as plus and minus one sigma. They decide only what the
  * readings leave open, such as a plateau outside the string. Where the residuals are larger than
  * their sigmas (the front is no erf) the covariance grows by chi squared over its degrees of freedom
- * (Birge 1932). A front with fewer than two readings in its steep part has no width, and its
+ * (Birge 1932); where they are four times smaller without the worst reading, it is left out instead
+ * (`left_out`): sensors are judged elsewhere, but one that fails now must not bend the view until
+ * then. A front with fewer than two readings in its steep part has no width, and its
  * position is that of `bracketFront`.
  *
  * @param readings any order; missing ones as NaN
@@ -133,8 +142,15 @@ export function fitFront(
     discharged_K,
   ];
   const solution = solveFront(data, prior, start);
-  if (solution !== null && steepReadings(data, solution.parameters) >= 2)
-    return publish(solution, data, references);
+  if (solution !== null && steepReadings(data, solution.parameters) >= 2) {
+    if (solution.misfit > BAD_MISFIT && sorted.length > LEAST_LEFT) {
+      const fewer = columns(sorted.filter((_, i) => i !== solution.worst));
+      const better = solveFront(fewer, prior, solution.parameters);
+      if (better !== null && BETTER * better.misfit < solution.misfit)
+        return publish(better, fewer, references, 1);
+    }
+    return publish(solution, data, references, 0);
+  }
   return bracketFront(data, prior, front.position_m) ?? none('not_settled');
 }
 
@@ -180,6 +196,7 @@ function publish(
   solution: FrontSolution,
   data: FrontData,
   { charged_K, discharged_K }: FrontReferences,
+  left_out: 0 | 1,
 ): FrontFit | NoFrontFit {
   const [p, logW, A, B] = solution.parameters;
   const w = Math.exp(logW);
@@ -210,6 +227,7 @@ function publish(
     covariance: carry(jacobian, solution.covariance, inflation),
     white: carry(jacobian, solution.white, 1),
     misfit: solution.misfit,
+    left_out,
   };
 }
 

@@ -32,6 +32,8 @@ export interface FrontSolution {
   readonly white: Float64Array;
   /** Sum of squared normalised residuals, priors included, over its degrees of freedom. */
   readonly misfit: number;
+  /** Index of the reading with the largest studentised residual, r^2/(var - var of the fit there). */
+  readonly worst: number;
 }
 
 const MOST_STEPS = 60;
@@ -77,6 +79,7 @@ export function solveFront(data: FrontData, prior: FrontPrior, start: Four): Fro
     covariance,
     white: whitePart(data, weights, at, covariance),
     misfit: freedom > 0 ? system.squares / freedom : 1,
+    worst: worstReading(data, weights, at, covariance),
   };
 }
 
@@ -181,6 +184,30 @@ function derivatives(x: number, p: number, w: number, A: number, B: number, j: F
   j[2] = 1 - share;
   j[3] = share;
   return A + (B - A) * share;
+}
+
+function worstReading(
+  data: FrontData,
+  weights: Float64Array,
+  [p, logW, A, B]: Four,
+  covariance: Float64Array,
+): number {
+  const j: Four = [0, 0, 0, 0];
+  let worst = 0;
+  let most = -1;
+  for (let i = 0; i < weights.length; i++) {
+    const model = derivatives(data.x_m[i]!, p, Math.exp(logW), A, B, j);
+    let spread = 0;
+    for (let k = 0; k < 16; k++) spread += j[k >> 2]! * covariance[k]! * j[k & 3]!;
+    // A reading that the fit follows entirely (leverage 1) can show no residual.
+    const free = 1 / weights[i]! - spread;
+    const size = free > 0 ? (data.temperature_K[i]! - model) ** 2 / free : 0;
+    if (size > most) {
+      most = size;
+      worst = i;
+    }
+  }
+  return worst;
 }
 
 function whitePart(
