@@ -3,6 +3,7 @@ import { describe, expect, it } from 'vitest';
 import { energyPosition } from '../../../src/core/track/energyPosition.js';
 import { crossingDerivative, frontSigma } from '../../../src/core/track/frontSigma.js';
 import { findFronts } from '../../../src/core/track/fronts.js';
+import { fixtureRows, numberIn } from '../../support/table.js';
 
 const TH = 773.15;
 const TC = 298.15;
@@ -172,6 +173,32 @@ describe('fronts of a profile', () => {
       ),
       { seed: 7, numRuns: 500 },
     );
+  });
+});
+
+describe('fronts of a measured profile (Pacheco et al. 2002, straight lines between the points)', () => {
+  // Published values to three decimals, as the fixture's source states them; charged at the top.
+  const cases = [
+    { time: 0, position: 0.845, width: null },
+    { time: 0.5, position: 1.82, width: 0.739 },
+    { time: 1, position: 2.679, width: 0.959 },
+  ];
+  const rows = fixtureRows('sandia_pacheco2002_discharge_measured.csv');
+  it.each(cases)('at $time h', ({ time, position, width }) => {
+    const points = rows
+      .filter((row) => numberIn(row, 'time_h') === time)
+      .map((row) => [numberIn(row, 'height_m'), numberIn(row, 'temperature_C')] as const)
+      .sort((a, b) => a[0] - b[0]);
+    const { fronts } = findFronts(
+      Float64Array.from(points, (p) => p[0]),
+      Float64Array.from(points, (p) => p[1] + 273.15),
+      396 + 273.15,
+      290 + 273.15,
+    );
+    expect(fronts).toHaveLength(1);
+    expect(Math.abs(fronts[0]!.position_m - position)).toBeLessThan(0.0006);
+    if (width === null) expect(fronts[0]!.width_m).toBeNull();
+    else expect(Math.abs(fronts[0]!.width_m! - width)).toBeLessThan(0.0006);
   });
 });
 
