@@ -1,0 +1,250 @@
+import { type BedWork, bedSubstep, planSubsteps } from '../bed/kernel.js';
+import { pressureDrop } from '../bed/pressureDrop.js';
+import { type BedTables, temperatureAt } from '../bed/tables.js';
+import type { StoreDefinition, UnitDefinition } from '../definitions.js';
+import type { EndCause } from '../estimate.js';
+import type { Machine } from '../machine/machine.js';
+
+/** One tube as the rollout needs it. */
+export interface RolloutTube {
+  readonly area_share: number;
+  readonly enthalpy: Float64Array;
+  readonly flowFactor: number;
+  readonly heatTransferFactor: number;
+  readonly wallLoss_W_m3K: number;
+}
+
+export interface RolloutStore {
+  readonly store: StoreDefinition;
+  readonly tables: BedTables;
+  readonly tubes: readonly RolloutTube[];
+  /** Gas and steel at the end where the gas leaves when discharging [K]; NaN = as the bed's end. */
+  readonly plenum_K: number;
+}
+
+export interface RolloutInput {
+  readonly unit: UnitDefinition;
+  readonly machine: Machine;
+  readonly stores: readonly RolloutStore[];
+  /** Net power delivered at the connection point [W]. */
+  readonly power_W: number;
+  /** Learned factor on the machine's work per metered kilogram. */
+  readonly workFactor: number;
+  readonly ambient_K: number;
+  readonly step_s: number;
+  readonly most_s: number;
+}
+
+/** The rules that may end a discharge, in the order of `RolloutResult.times_s`. */
+export const RULES: readonly EndCause[] = [
+  'hot_outlet',
+  'cold_outlet',
+  'flow',
+  'pressure_drop',
+  'empty',
+];
+
+export interface RolloutResult {
+  /** When each rule is first broken [s], Infinity where it is not within the time rolled. */
+  readonly times_s: Float64Array;
+  /** Earliest of them, and which. Infinity with `empty` where none was broken. */
+  readonly end_s: number;
+  readonly ends_by: EndCause;
+}
+
+/** Gas that stood under a lid may take this long to be pushed out [s]. */
+const SWEEP_MOST_S = 600;
+/** After the first rule is broken the others are followed for this share of the time longer. */
+const FOLLOW = 0.3;
+
+/**
+ * Discharges a copy of the beds at constant net power until a stop rule, all tubes of both stores
+ * together: each step takes the metered flow m that P needs at the present mixed outlets,
+ * m = (P + aux)/(w(T_hot, T_cold) kappa), and gives each tube m f_k/A.
+ *
+ * The outlet-temperature rules wait until the plenum is swept, 10 minutes at most; where they are
+ * still broken then, the discharge has not begun: 0 h. Each rule's time is interpolated within its
+ * step, so the result is smooth in the state.
+ */
+export function rollOut(
+  input: RolloutInput,
+  works: readonly (readonly BedWork[])[],
+): RolloutResult {
+  const { machine } = input;
+  const { limits } = input.unit;
+  const beds = input.stores.map((s) => s.tubes.map((t) => Float64Array.from(t.enthalpy)));
+  const times = new Float64Array(RULES.length).fill(Number.POSITIVE_INFINITY);
+  const before = new Float64Array(RULES.length).fill(Number.NaN);
+  const plenum = input.stores.map((s, i) =>
+    Number.isFinite(s.plenum_K) ? s.plenum_K : mixedEnd(s, beds[i] as Float64Array[]),
+  );
+  const hotIndex = input.stores.findIndex((s) => s.store.kind === 'hot');
+  const coldIndex = input.stores.findIndex((s) => s.store.kind === 'cold');
+  let swept = false;
+  let first = Number.POSITIVE_INFINITY;
+  const sweptMass = input.stores.map(() => 0);
+  for (let t = 0; t <= input.most_s; t += input.step_s) {
+    const outlets = {
+      hot_K: plenum[hotIndex] ?? Number.NaN,
+      cold_K: coldIndex >= 0 ? (plenum[coldIndex] as number) : null,
+    };
+    const point = machine.operate('discharge', outlets, input.ambient_K);
+    const work = point.specificWork_J_kg * input.workFactor;
+    const flow = work > 0 ? (input.power_W + machine.auxiliary_running_W) / work : Infinity;
+    const drop = worstDrop(input, beds, flow);
+    // Each margin is positive while its rule holds.
+    const margins = [
+      limits.hot_outlet_min_K === null || hotIndex < 0
+        ? Number.NaN
+        : outlets.hot_K - limits.hot_outlet_min_K,
+      limits.cold_outlet_max_K === null || outlets.cold_K === null
+        ? Number.NaN
+        : limits.cold_outlet_max_K - outlets.cold_K,
+      Number.isFinite(flow) ? limits.discharge.flow_max_kg_s - flow : -1,
+      limits.pressure_drop_max_Pa === null ? Number.NaN : limits.pressure_drop_max_Pa - drop,
+      point.specificWork_J_kg,
+    ];
+    if (!swept && (t >= SWEEP_MOST_S || isSwept(input, plenum, sweptMass, t))) swept = true;
+    margins.forEach((margin, r) => {
+      if (times[r] !== Number.POSITIVE_INFINITY || Number.isNaN(margin)) return;
+      if (r <= 1 && !swept) return;
+      if (margin > 0) {
+        before[r] = margin;
+        return;
+      }
+      const last = before[r] as number;
+      // Broken at its very first test: there never was a discharge.
+      times[r] = Number.isNaN(last) ? 0 : t - (input.step_s * margin) / (margin - last);
+      first = Math.min(first, times[r] as number);
+    });
+    if (!Number.isFinite(flow) || t > first * (1 + FOLLOW) || (first === 0 && swept)) break;
+    // Past its first broken rule the flow may run away; the rest only serves the other rules' times.
+    const used = Math.min(flow, 2 * limits.discharge.flow_max_kg_s);
+    input.stores.forEach((store, i) => {
+      const inlet =
+        store.store.kind === 'hot' ? point.inlets.hot_K : (point.inlets.cold_K as number);
+      const out = stepStoreBeds(
+        input,
+        store,
+        beds[i] as Float64Array[],
+        used,
+        inlet,
+        works[i] ?? [],
+      );
+      plenum[i] = throughPlenum(store, plenum[i] as number, out, used, input.step_s);
+      sweptMass[i] = (sweptMass[i] as number) + used * input.step_s;
+    });
+  }
+  let end = Number.POSITIVE_INFINITY;
+  let cause: EndCause = 'empty';
+  times.forEach((time, r) => {
+    if (time < end) {
+      end = time;
+      cause = RULES[r] as EndCause;
+    }
+  });
+  return { times_s: times, end_s: end, ends_by: cause };
+}
+
+/** Steps all tubes of a store; returns the mixed outlet [K]. */
+function stepStoreBeds(
+  input: RolloutInput,
+  store: RolloutStore,
+  beds: readonly Float64Array[],
+  flow_kg_s: number,
+  inlet_K: number,
+  works: readonly BedWork[],
+): number {
+  let heat = 0;
+  let mass = 0;
+  store.tubes.forEach((tube, k) => {
+    const flux = (flow_kg_s * tube.flowFactor) / store.store.bed.area_m2;
+    const work = works[k] as BedWork;
+    const step = {
+      massFlux_kg_m2s: -flux,
+      inlet_K,
+      ambient_K: input.ambient_K,
+      dt_s: input.step_s,
+      heatTransferFactor: tube.heatTransferFactor,
+      wallLoss_W_m3K: tube.wallLoss_W_m3K,
+    };
+    const substeps = planSubsteps(store.tables, work.cells, step);
+    const part = { ...step, dt_s: step.dt_s / substeps };
+    let out = 0;
+    for (let n = 0; n < substeps; n++) {
+      bedSubstep(store.tables, beds[k] as Float64Array, part, work);
+      out += work.outlet_K;
+    }
+    const weight = tube.area_share * flux;
+    heat += weight * (out / substeps);
+    mass += weight;
+  });
+  return heat / mass;
+}
+
+/** Area-mean temperature of the bed's end where the gas leaves when discharging [K]. */
+function mixedEnd(store: RolloutStore, beds: readonly Float64Array[]): number {
+  let sum = 0;
+  store.tubes.forEach((tube, k) => {
+    sum += tube.area_share * temperatureAt(store.tables, beds[k]?.[0] as number);
+  });
+  return sum;
+}
+
+/** Well-mixed node of gas and steel: T' = out + (T - out) exp(-m cp dt/(C + rho V cp)). */
+function throughPlenum(
+  store: RolloutStore,
+  plenum_K: number,
+  out_K: number,
+  flow_kg_s: number,
+  dt_s: number,
+): number {
+  const { bed } = store.store;
+  const cp = bed.fluid.heatCapacity(out_K);
+  const gas =
+    bed.end_volume_m3.charge_inlet * bed.fluid.density_kg_m3(plenum_K, bed.pressure_Pa) * cp;
+  const capacity = bed.end_capacity_J_K.charge_inlet + gas;
+  if (capacity <= 0) return out_K;
+  return out_K + (plenum_K - out_K) * Math.exp((-flow_kg_s * cp * dt_s) / capacity);
+}
+
+/** True once the gas and, by its heat, the steel at the outlet ends have been replaced twice. */
+function isSwept(
+  input: RolloutInput,
+  plenum_K: readonly number[],
+  sweptMass: readonly number[],
+  t: number,
+): boolean {
+  return input.stores.every((store, i) => {
+    const { bed } = store.store;
+    const capacity = bed.end_capacity_J_K.charge_inlet;
+    const volume = bed.end_volume_m3.charge_inlet;
+    if (capacity === 0 && volume === 0) return t > 0;
+    const temperature = plenum_K[i] as number;
+    const gas = volume * bed.fluid.density_kg_m3(temperature, bed.pressure_Pa);
+    const steel = capacity / bed.fluid.heatCapacity(temperature);
+    return (sweptMass[i] as number) > 2 * (gas + steel);
+  });
+}
+
+function worstDrop(
+  input: RolloutInput,
+  beds: readonly (readonly Float64Array[])[],
+  flow_kg_s: number,
+): number {
+  if (input.unit.limits.pressure_drop_max_Pa === null || !Number.isFinite(flow_kg_s)) return 0;
+  let worst = 0;
+  input.stores.forEach((store, i) => {
+    const bed = beds[i]?.[0] as Float64Array;
+    const profile = new Float64Array(16);
+    for (let n = 0; n < 16; n++) {
+      const cell = Math.floor(((n + 0.5) / 16) * bed.length);
+      profile[n] = temperatureAt(store.tables, bed[cell] as number);
+    }
+    worst = Math.max(
+      worst,
+      pressureDrop(store.store.bed, flow_kg_s / store.store.bed.area_m2, profile),
+    );
+  });
+  return worst;
+}

@@ -1,0 +1,170 @@
+import type { SensorVerdict } from '../estimate.js';
+
+/** What is remembered of one thermocouple to judge it. Plain values, bounded. */
+export interface SensorMemory {
+  verdict: SensorVerdict | null;
+  since_ms: number;
+  evidence: string;
+  /** Last reading, when it last changed, and what was predicted then [K]. */
+  last_K: number;
+  changed_ms: number;
+  predictedAtChange_K: number;
+  /** Scans in a row outside the gate, and the innovation at the first of them [K]. */
+  outside: number;
+  firstOutside_K: number;
+  /** Scans in a row that a rejected sensor has looked sound. */
+  sound: number;
+}
+
+export function freshSensor(): SensorMemory {
+  return {
+    verdict: null,
+    since_ms: 0,
+    evidence: '',
+    last_K: Number.NaN,
+    changed_ms: 0,
+    predictedAtChange_K: Number.NaN,
+    outside: 0,
+    firstOutside_K: 0,
+    sound: 0,
+  };
+}
+
+/** One sensor's reading against what the tube expects. */
+export interface SensorEvidence {
+  readonly time_ms: number;
+  /** NaN = missing. */
+  readonly value_K: number;
+  /** Other thermocouples of the store delivered in this scan. */
+  readonly othersPresent: boolean;
+  readonly predicted_K: number;
+  /** Standard deviation of the innovation [K]. */
+  readonly sigma_K: number;
+  /** Smallest change that this channel reports [K]. */
+  readonly deadband_K: number;
+  /** Range of temperatures that the plant can produce [K]. */
+  readonly range_K: readonly [number, number];
+}
+
+/** Scans and limits of the judgement. */
+const GATE_SIGMAS = 4.5;
+const OUTSIDE_SCANS = 5;
+const SOUND_SIGMAS = 3;
+const SOUND_SCANS = 20;
+const STUCK_S = 1800;
+const STUCK_MIN_MOVE_K = 4;
+/** A reading that repeats within this is unchanged: below the resolution of usual input cards. */
+const UNCHANGED_K = 0.01;
+
+export type Judgement = 'use' | 'leave_out';
+
+/**
+ * Judges one thermocouple in one scan: whether its reading may be used, and its verdict.
+ *
+ * - `open`: missing while others of the store deliver; ends with the next reading.
+ * - `burst`: outside the range that the plant can produce.
+ * - `stuck`: unchanged for 30 min while the rock beside it is predicted to have moved by more than
+ *   4 K and six sigma of the innovation. A value that is rightly steady is never stuck.
+ * - `offset` / `drifting`: five scans in a row outside 4.5 sigma; drifting where the innovation
+ *   grew by a third or more since the first of them.
+ *
+ * A rejected sensor returns after 20 scans in a row within 3 sigma.
+ */
+export function judgeSensor(memory: SensorMemory, evidence: SensorEvidence): Judgement {
+  const { value_K: value, time_ms } = evidence;
+  if (!Number.isFinite(value)) {
+    if (evidence.othersPresent && memory.verdict === null) {
+      set(memory, 'open', time_ms, 'no reading while others of the store deliver');
+    }
+    memory.outside = 0;
+    return 'leave_out';
+  }
+  if (memory.verdict === 'open') clear(memory);
+  const [low, high] = evidence.range_K;
+  if (value < low || value > high) {
+    if (memory.verdict !== 'burst') {
+      const shown = (value - 273.15).toFixed(1);
+      set(memory, 'burst', time_ms, `reads ${shown} degC, beyond what the plant can produce`);
+    }
+    return 'leave_out';
+  }
+  followChange(memory, evidence);
+  const innovation = value - evidence.predicted_K;
+  const within = Math.abs(innovation) <= GATE_SIGMAS * evidence.sigma_K;
+  if (memory.verdict === null) return judgeSound(memory, evidence, innovation, within);
+  if (Math.abs(innovation) <= SOUND_SIGMAS * evidence.sigma_K && !isStuck(memory, evidence)) {
+    memory.sound++;
+    if (memory.sound >= SOUND_SCANS) clear(memory);
+  } else memory.sound = 0;
+  return 'leave_out';
+}
+
+function judgeSound(
+  memory: SensorMemory,
+  evidence: SensorEvidence,
+  innovation: number,
+  within: boolean,
+): Judgement {
+  if (isStuck(memory, evidence)) {
+    const moved = Math.abs(evidence.predicted_K - memory.predictedAtChange_K);
+    const minutes = Math.round((evidence.time_ms - memory.changed_ms) / 60_000);
+    set(
+      memory,
+      'stuck',
+      evidence.time_ms,
+      `unchanged for ${minutes} min while the rock there moved by ${moved.toFixed(1)} K`,
+    );
+    return 'leave_out';
+  }
+  if (within) {
+    memory.outside = 0;
+    return 'use';
+  }
+  if (memory.outside === 0) memory.firstOutside_K = innovation;
+  memory.outside++;
+  if (memory.outside >= OUTSIDE_SCANS) {
+    const grown = Math.abs(innovation) > 1.33 * Math.abs(memory.firstOutside_K);
+    const sigmas = Math.abs(innovation) / evidence.sigma_K;
+    set(
+      memory,
+      grown ? 'drifting' : 'offset',
+      evidence.time_ms,
+      `${innovation.toFixed(1)} K from the estimate (${sigmas.toFixed(1)} sigma) for ${memory.outside} scans`,
+    );
+  }
+  return 'leave_out';
+}
+
+function followChange(memory: SensorMemory, evidence: SensorEvidence): void {
+  const threshold = Math.max(UNCHANGED_K, evidence.deadband_K);
+  if (!(Math.abs(evidence.value_K - memory.last_K) <= threshold)) {
+    memory.last_K = evidence.value_K;
+    memory.changed_ms = evidence.time_ms;
+    memory.predictedAtChange_K = evidence.predicted_K;
+  }
+}
+
+function isStuck(memory: SensorMemory, evidence: SensorEvidence): boolean {
+  if (evidence.time_ms - memory.changed_ms < STUCK_S * 1000) return false;
+  const moved = Math.abs(evidence.predicted_K - memory.predictedAtChange_K);
+  return moved > Math.max(STUCK_MIN_MOVE_K, 6 * evidence.sigma_K, 2 * evidence.deadband_K);
+}
+
+function set(
+  memory: SensorMemory,
+  verdict: SensorVerdict,
+  time_ms: number,
+  evidence: string,
+): void {
+  memory.verdict = verdict;
+  memory.since_ms = time_ms;
+  memory.evidence = evidence;
+  memory.sound = 0;
+}
+
+function clear(memory: SensorMemory): void {
+  memory.verdict = null;
+  memory.evidence = '';
+  memory.outside = 0;
+  memory.sound = 0;
+}

@@ -1,0 +1,199 @@
+import type {
+  FrontEstimate,
+  FrontReason,
+  FrontViewEstimate,
+  RejectedSensor,
+  SensorReading,
+  StoreEstimate,
+  StringEstimate,
+  TubeProfile,
+} from '../estimate.js';
+import { energyPosition } from './energyPosition.js';
+import { type Covariance, frontSigma } from './frontSigma.js';
+import { type FoundFront, findFronts } from './fronts.js';
+import { referenceEnthalpies, storeEnergy } from './storeEnergy.js';
+import type { StoreModel, StoreState } from './storeTracker.js';
+import { type TubeModel, type TubeState, tubeTemperatures } from './tube.js';
+
+/** Cell centres of a store's tubes [m]. */
+export function cellCentres(model: StoreModel): Float64Array {
+  const cells = (model.tubes[0] as TubeModel).layout.cells;
+  const dx = model.store.bed.length_m / cells;
+  return Float64Array.from({ length: cells }, (_, i) => (i + 0.5) * dx);
+}
+
+/** Area-mean temperatures [K]. */
+export function meanTemperatures(model: StoreModel, state: StoreState): Float64Array {
+  const cells = (model.tubes[0] as TubeModel).layout.cells;
+  const mean = new Float64Array(cells);
+  const own = new Float64Array(cells);
+  model.tubes.forEach((tube, k) => {
+    tubeTemperatures(tube, state.tubes[k] as TubeState, own);
+    const w = tube.string.area_share;
+    for (let i = 0; i < cells; i++) mean[i] = (mean[i] as number) + w * (own[i] as number);
+  });
+  return mean;
+}
+
+/** What a store publishes, but for the front views and the spread ratio, which come from outside. */
+export function estimateStore(
+  model: StoreModel,
+  state: StoreState,
+  extra: { front_views: FrontViewEstimate[]; spread_ratio: number | null; flowing: boolean },
+): StoreEstimate {
+  const energy = storeEnergy(model, state);
+  const { store } = model;
+  const x = cellCentres(model);
+  const mean = meanTemperatures(model, state);
+  const found = findFronts(x, mean, store.reference_hot_K, store.reference_cold_K);
+  const { charged, discharged } = referenceEnthalpies(model);
+  const reason: FrontReason | null = state.started ? found.reason : 'not_started';
+  let position = 0;
+  let outlet = 0;
+  model.tubes.forEach((tube, k) => {
+    const tubeState = state.tubes[k] as TubeState;
+    const w = tube.string.area_share;
+    position += w * energyPosition(tubeState.enthalpy, x[0]! * 2, charged, discharged);
+    outlet += w * tubeState.outlet_K;
+  });
+  const transfer = meanFactor(model, state, 'transfer');
+  return {
+    soc: energy.soc,
+    soc_sigma: energy.soc_sigma,
+    stored_MWh_th: energy.stored_MWh_th,
+    stored_sigma_MWh_th: energy.stored_sigma_MWh_th,
+    fronts: state.started
+      ? found.fronts.map((front) =>
+          describe(front, meanCovariance(model, state, energy.correlation)),
+        )
+      : [],
+    fronts_reason: reason,
+    energy_position_m: position,
+    spread_ratio: extra.spread_ratio,
+    heat_transfer_factor: store.bed.heat_transfer_factor * transfer.value,
+    heat_transfer_factor_sigma: store.bed.heat_transfer_factor * transfer.sigma,
+    strings: model.tubes.map((tube, k) =>
+      describeString(model, tube, state.tubes[k] as TubeState, x),
+    ),
+    front_views: extra.front_views,
+    sensors: { used: state.used, rejected: rejectedSensors(model, state) },
+    outlet_K: extra.flowing && Number.isFinite(outlet) ? outlet : null,
+  };
+}
+
+/** Covariance of the area-mean profile: the tubes' mean, scaled by how far their errors are shared. */
+function meanCovariance(model: StoreModel, state: StoreState, correlation: number): Covariance {
+  return (i, j) => {
+    let sum = 0;
+    model.tubes.forEach((tube, k) => {
+      const p = (state.tubes[k] as TubeState).covariance;
+      sum += tube.string.area_share * (p[i * tube.layout.size + j] as number);
+    });
+    return sum * correlation;
+  };
+}
+
+function describe(front: FoundFront, covariance: Covariance): FrontEstimate {
+  const sigma = frontSigma(front, covariance);
+  return {
+    position_m: front.position_m,
+    position_sigma_m: sigma.position_sigma_m,
+    width_m: front.width_m,
+    width_sigma_m: sigma.width_sigma_m,
+  };
+}
+
+function describeString(
+  model: StoreModel,
+  tube: TubeModel,
+  state: TubeState,
+  x: Float64Array,
+): StringEstimate {
+  const { flow, size, cells } = tube.layout;
+  const own = tubeTemperatures(tube, state, new Float64Array(cells));
+  const { store } = model;
+  const found = findFronts(x, own, store.reference_hot_K, store.reference_cold_K);
+  const front = found.fronts[0];
+  const factor = Math.exp(state.further[flow - cells] as number);
+  return {
+    id: tube.string.id,
+    flow_factor: factor,
+    flow_factor_sigma: factor * Math.sqrt(state.covariance[flow * size + flow] as number),
+    position_m: front?.position_m ?? null,
+    width_m: front?.width_m ?? null,
+  };
+}
+
+/** Area-weighted mean of a factor over the tubes, and its sigma (errors taken as independent). */
+export function meanFactor(
+  model: StoreModel,
+  state: StoreState,
+  which: 'flow' | 'transfer',
+): { value: number; sigma: number } {
+  let sum = 0;
+  let variance = 0;
+  model.tubes.forEach((tube, k) => {
+    const tubeState = state.tubes[k] as TubeState;
+    const index = tube.layout[which];
+    const w = tube.string.area_share;
+    sum += w * (tubeState.further[index - tube.layout.cells] as number);
+    variance += w * w * (tubeState.covariance[index * tube.layout.size + index] as number);
+  });
+  const value = Math.exp(sum);
+  return { value, sigma: value * Math.sqrt(variance) };
+}
+
+export function rejectedSensors(model: StoreModel, state: StoreState): RejectedSensor[] {
+  const out: RejectedSensor[] = [];
+  model.tubes.forEach((tube, k) => {
+    tube.string.thermocouples.forEach((thermocouple, s) => {
+      const memory = state.sensors[k]?.[s];
+      if (memory === undefined || memory.verdict === null) return;
+      out.push({
+        id: thermocouple.id,
+        verdict: memory.verdict,
+        since: new Date(memory.since_ms).toISOString(),
+        evidence: memory.evidence,
+      });
+    });
+  });
+  return out;
+}
+
+/** Profiles and readings for pages and reports. */
+export function profileOf(
+  model: StoreModel,
+  state: StoreState,
+  values: Float64Array,
+): { x_m: number[]; tubes: TubeProfile[]; mean_K: number[]; readings: SensorReading[] } {
+  const tubes: TubeProfile[] = [];
+  const readings: SensorReading[] = [];
+  model.tubes.forEach((tube, k) => {
+    const { cells, size } = tube.layout;
+    const tubeState = state.tubes[k] as TubeState;
+    const t = tubeTemperatures(tube, tubeState, new Float64Array(cells));
+    tubes.push({
+      id: tube.string.id,
+      temperature_K: Array.from(t),
+      sigma_K: Array.from(t, (_, i) =>
+        Math.sqrt(Math.max(0, tubeState.covariance[i * size + i] as number)),
+      ),
+    });
+    tube.string.thermocouples.forEach((thermocouple, s) => {
+      const value = values[model.channels[k]?.[s] as number] as number;
+      readings.push({
+        id: thermocouple.id,
+        string: tube.string.id,
+        position_m: thermocouple.position_m,
+        value_K: Number.isFinite(value) ? value : null,
+        verdict: state.sensors[k]?.[s]?.verdict ?? null,
+      });
+    });
+  });
+  return {
+    x_m: Array.from(cellCentres(model)),
+    tubes,
+    mean_K: Array.from(meanTemperatures(model, state)),
+    readings,
+  };
+}

@@ -1,0 +1,217 @@
+import {
+  type BedStep,
+  type BedWork,
+  bedSubstep,
+  createBedWork,
+  planSubsteps,
+  wallLossPerVolume,
+} from '../bed/kernel.js';
+import { type BedTables, enthalpyAt, temperatureAt } from '../bed/tables.js';
+import {
+  applyTangent,
+  type BedTangent,
+  createBedTangent,
+  linearise,
+  transpose,
+} from '../bed/tangent.js';
+import type { EstimatorDefinition, StoreDefinition, StringDefinition } from '../definitions.js';
+import { layoutOf, type TubeLayout } from './layout.js';
+import { addProcessNoise } from './processNoise.js';
+
+/** What never changes of one stream tube. */
+export interface TubeModel {
+  readonly store: StoreDefinition;
+  readonly string: StringDefinition;
+  readonly estimator: EstimatorDefinition;
+  readonly tables: BedTables;
+  readonly layout: TubeLayout;
+  /** Wall loss of this tube per volume [W/m3K]. */
+  readonly wallLoss_W_m3K: number;
+}
+
+/**
+ * State of one stream tube: enthalpy of each cell [J/m3 of bed], the further states (their
+ * positions less `layout.cells`, see TubeLayout), and the covariance of temperatures [K] and
+ * further states, symmetric, row-major.
+ */
+export interface TubeState {
+  readonly enthalpy: Float64Array;
+  readonly further: Float64Array;
+  readonly covariance: Float64Array;
+  /** Gas-to-rock lag at the last step, signed by the flow [m]. */
+  readonly gasLag_m: Float64Array;
+  /** Mean temperature of the gas that left in the last step [K], NaN while standing. */
+  outlet_K: number;
+}
+
+/** Arrays that the steps of one size share; never part of the state. */
+export interface TubeScratch {
+  readonly work: BedWork;
+  readonly probe: BedWork;
+  readonly tangent: BedTangent;
+  readonly vectors: readonly [Float64Array, Float64Array];
+  readonly probeEnthalpy: Float64Array;
+  readonly flowColumn: Float64Array;
+  readonly transferColumn: Float64Array;
+  readonly slope: Float64Array;
+  readonly temperature: Float64Array;
+  readonly gain: Float64Array;
+}
+
+export function tubeModel(
+  store: StoreDefinition,
+  string: StringDefinition,
+  estimator: EstimatorDefinition,
+  tables: BedTables,
+): TubeModel {
+  // Heat lost through the mantle is felt near the wall first (2 sqrt(alpha t), about 0.6 m a day):
+  // the outermost tube carries it all, the inner ones none.
+  const outermost = store.strings.reduce((a, b) => (b.radius_m > a.radius_m ? b : a));
+  const share = outermost.id === string.id ? 1 / string.area_share : 0;
+  return {
+    store,
+    string,
+    estimator,
+    tables,
+    layout: layoutOf(string, estimator),
+    wallLoss_W_m3K: wallLossPerVolume(tables, share),
+  };
+}
+
+export function createTubeScratch(layout: TubeLayout): TubeScratch {
+  const cells = layout.cells;
+  return {
+    work: createBedWork(cells),
+    probe: createBedWork(cells),
+    tangent: createBedTangent(cells),
+    vectors: [new Float64Array(layout.size), new Float64Array(layout.size)],
+    probeEnthalpy: new Float64Array(cells),
+    flowColumn: new Float64Array(cells),
+    transferColumn: new Float64Array(cells),
+    slope: new Float64Array(cells),
+    temperature: new Float64Array(cells),
+    gain: new Float64Array(layout.size),
+  };
+}
+
+/** Conditions of a tube over one scan. */
+export interface TubeDrive {
+  /** Metered mean mass flux of the bed [kg/m2s], + = charge. */
+  readonly massFlux_kg_m2s: number;
+  /** Measured or assumed temperature of the entering gas [K]. */
+  readonly inlet_K: number;
+  /** Extra white uncertainty of that temperature [K], 0 where it is measured. */
+  readonly inletSigma_K: number;
+  readonly ambient_K: number;
+  readonly dt_s: number;
+  /** Unknown travel of the front in this scan [m], one sigma, in line with that of earlier scans. */
+  readonly travelSigma_m: number;
+}
+
+/** Relative step of the finite differences that form the columns of flow and transfer factor. */
+const PROBE = 1e-4;
+
+/** Moves a tube over one scan: its mean by the bed model, its covariance by the model's tangent. */
+export function predictTube(
+  model: TubeModel,
+  state: TubeState,
+  drive: TubeDrive,
+  scratch: TubeScratch,
+): void {
+  const { layout, tables } = model;
+  const further = state.further;
+  const at = (index: number): number => further[index - layout.cells] as number;
+  const end = drive.massFlux_kg_m2s >= 0 ? 'charge_inlet' : 'discharge_inlet';
+  const whole: BedStep = {
+    massFlux_kg_m2s: drive.massFlux_kg_m2s * Math.exp(at(layout.flow)),
+    inlet_K: drive.inlet_K + at(layout.inlet[end]),
+    ambient_K: drive.ambient_K,
+    dt_s: drive.dt_s,
+    heatTransferFactor: Math.exp(at(layout.transfer)),
+    wallLoss_W_m3K: model.wallLoss_W_m3K,
+  };
+  const substeps = planSubsteps(tables, layout.cells, whole);
+  const step: BedStep = { ...whole, dt_s: whole.dt_s / substeps };
+  const { work, tangent } = scratch;
+  let gasOut = 0;
+  for (let n = 0; n < substeps; n++) {
+    const flowing = step.massFlux_kg_m2s !== 0;
+    if (flowing) {
+      probeColumn(tables, state.enthalpy, step, scratch, 'flow');
+      probeColumn(tables, state.enthalpy, step, scratch, 'transfer');
+    }
+    bedSubstep(tables, state.enthalpy, step, work);
+    gasOut += work.outlet_K;
+    if (flowing) {
+      finishColumn(tables, state.enthalpy, scratch.flowColumn);
+      finishColumn(tables, state.enthalpy, scratch.transferColumn);
+    }
+    linearise(tables, state.enthalpy, step, work, tangent);
+    const rows = {
+      inlet: layout.inlet[end],
+      parameters: flowing
+        ? [
+            { row: layout.flow, column: scratch.flowColumn },
+            { row: layout.transfer, column: scratch.transferColumn },
+          ]
+        : [],
+    };
+    applyTangent(tangent, state.covariance, layout.size, rows, false, scratch.vectors);
+    transpose(state.covariance, layout.size);
+    applyTangent(tangent, state.covariance, layout.size, rows, true, scratch.vectors);
+    addProcessNoise(model, state, { ...drive, dt_s: step.dt_s, scans: 1 / substeps }, scratch);
+  }
+  state.outlet_K = gasOut / substeps;
+  const sign = Math.sign(whole.massFlux_kg_m2s);
+  for (let i = 0; i < layout.cells; i++) state.gasLag_m[i] = sign * (work.gasLag_m[i] as number);
+}
+
+/** Puts T' of the perturbed step into the column; `finishColumn` makes the difference quotient. */
+function probeColumn(
+  tables: BedTables,
+  enthalpy: Float64Array,
+  step: BedStep,
+  scratch: TubeScratch,
+  which: 'flow' | 'transfer',
+): void {
+  const probed: BedStep =
+    which === 'flow'
+      ? { ...step, massFlux_kg_m2s: step.massFlux_kg_m2s * (1 + PROBE) }
+      : { ...step, heatTransferFactor: step.heatTransferFactor * (1 + PROBE) };
+  scratch.probeEnthalpy.set(enthalpy);
+  bedSubstep(tables, scratch.probeEnthalpy, probed, scratch.probe);
+  const column = which === 'flow' ? scratch.flowColumn : scratch.transferColumn;
+  column.set(scratch.probeEnthalpy);
+}
+
+function finishColumn(tables: BedTables, enthalpy: Float64Array, column: Float64Array): void {
+  for (let i = 0; i < column.length; i++) {
+    // Divided by the heat capacity of the unperturbed cell: exact within a table segment.
+    const h = enthalpy[i] as number;
+    const dT = temperatureAt(tables, column[i] as number) - temperatureAt(tables, h);
+    column[i] = dT / PROBE;
+  }
+}
+
+/** Temperatures of the cells [K] into `out`. */
+export function tubeTemperatures(
+  model: TubeModel,
+  state: TubeState,
+  out: Float64Array,
+): Float64Array {
+  for (let i = 0; i < out.length; i++) {
+    out[i] = temperatureAt(model.tables, state.enthalpy[i] as number);
+  }
+  return out;
+}
+
+/** Sets the cells of a tube to given temperatures [K]. */
+export function setTubeTemperatures(
+  model: TubeModel,
+  state: TubeState,
+  temperature_K: Float64Array,
+): void {
+  for (let i = 0; i < temperature_K.length; i++) {
+    state.enthalpy[i] = enthalpyAt(model.tables, temperature_K[i] as number);
+  }
+}
