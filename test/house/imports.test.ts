@@ -65,7 +65,7 @@ const RULES: readonly Rule[] = [
     of: /^src\/commands\//,
     may: [
       /^src\/commands\//,
-      /^src\/daemon$/,
+      /^src\/daemon(\/|$)/,
       /^src\/config\//,
       core,
       /^src\/adapters\/(recording|history)\//,
@@ -75,7 +75,7 @@ const RULES: readonly Rule[] = [
       node,
     ],
   },
-  { of: /^src\/(daemon|worker)(\/|\.ts)/, may: [/^src\//, node] },
+  { of: /^src\/(daemon|worker)(\/|\.ts)/, may: [/./] },
   { of: /^src\/main\.ts$/, may: [/^src\/commands\//, /^src\/errors$/, /^commander$/, node] },
   { of: /^src\/log\.ts$/, may: [/^src\/errors$/, /^pino(-pretty)?$/] },
   { of: /^src\/errors\.ts$/, may: [] },

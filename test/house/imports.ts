@@ -33,7 +33,8 @@ export function code(file: string): string {
 }
 
 const FROM = /\b(import|export)\s+(type\s+)?([\w$*{][^;'"]*?)\s*from\s*['"]([^'"]+)['"]/g;
-const BARE = /\bimport\s*\(?\s*['"]([^'"]+)['"]/g;
+// Not the option --import of node, which stands in strings.
+const BARE = /(?<![-\w])import\s*\(?\s*['"]([^'"\n]+)['"]/g;
 const REQUIRE = /\brequire\s*\(\s*['"]([^'"]+)['"]/g;
 
 function onlyTypes(clause: string): boolean {

@@ -1,7 +1,17 @@
-import { once } from 'node:events';
 import { createWriteStream, type WriteStream } from 'node:fs';
 import { finished } from 'node:stream/promises';
 import { RockhourError, reasonOf } from '../../errors.js';
+
+/** Resolves when a stream takes more, or will never again. */
+function roomIn(stream: WriteStream | NodeJS.WriteStream): Promise<void> {
+  return new Promise((resolve) => {
+    const done = () => {
+      for (const event of ['drain', 'close', 'error']) stream.off(event, done);
+      resolve();
+    };
+    for (const event of ['drain', 'close', 'error']) stream.once(event, done);
+  });
+}
 
 /**
  * Writes lines of text to a file, or to standard output for `-`, no faster than it takes them. The
@@ -53,9 +63,7 @@ export class LineWriter {
     this.buffered = 0;
     if (text === '') return;
     const stream = this.open();
-    if (!stream.write(text)) {
-      await Promise.race([once(stream, 'drain'), once(stream, 'close')]).catch(() => undefined);
-    }
+    if (!stream.write(text)) await roomIn(stream);
     this.check();
   }
 

@@ -51,10 +51,16 @@ describe('JSON Lines', () => {
     const path = join(temporaryFolder('lines'), 'out.jsonl');
     const writer = new JsonLinesWriter(path);
     const long = 'x'.repeat(1000);
-    for (let i = 0; i < 500; i++) await writer.writeValue({ i, long, nan: Number.NaN });
+    const warnings: string[] = [];
+    const hear = (warning: Error) => warnings.push(warning.message);
+    process.on('warning', hear);
+    for (let i = 0; i < 2000; i++) await writer.writeValue({ i, long, nan: Number.NaN });
     await writer.close();
     const lines = readFileSync(path, 'utf8').trimEnd().split('\n');
-    expect(lines.map((line) => JSON.parse(line).i)).toEqual([...Array(500).keys()]);
+    process.off('warning', hear);
+    // A listener left behind at each wait would be warned of.
+    expect(warnings).toEqual([]);
+    expect(lines.map((line) => JSON.parse(line).i)).toEqual([...Array(2000).keys()]);
     expect(JSON.parse(lines[0] ?? '').nan).toBeNull();
   });
 
