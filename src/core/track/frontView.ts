@@ -75,25 +75,6 @@ export function startFrontView(string: {
 }
 
 /**
- * Front speed [m/s] for a mass flux: v = G cf (Th - Tc)/(H(Th) - H(Tc)), from the heat that the fluid
- * gives up against what the bed takes; for constant properties G cf/C.
- *
- * @param massFlux_kg_m2s G, signed: + charges [kg/m2s]
- * @param fluidStep_J_kg fluid enthalpy between the references [J/kg]
- * @param bedStep_J_m3 bed enthalpy between the references [J/m3]
- */
-export function frontSpeed(
-  massFlux_kg_m2s: number,
-  fluidStep_J_kg: number,
-  bedStep_J_m3: number,
-): number {
-  return (
-    (massFlux_kg_m2s * requirePositive('fluidStep_J_kg', fluidStep_J_kg)) /
-    requirePositive('bedStep_J_m3', bedStep_J_m3)
-  );
-}
-
-/**
  * Takes one scan of one string in: fit, then the two scalar filters, position and width squared.
  *
  * Prediction: position += travel, width^2 += spread. A travel that is wrong by a constant share (a

@@ -3,11 +3,11 @@ import { fluidByName } from '../../../src/core/bed/fluids.js';
 import {
   disagreement,
   type FrontViewInput,
-  frontSpeed,
   startFrontView,
   stepFrontView,
 } from '../../../src/core/track/frontView.js';
 import { lagVariance } from '../../../src/core/track/frontViewTracked.js';
+import { frontSpeed, frontSpread } from '../../../src/core/track/frontViewTravel.js';
 import {
   COLD,
   type ErfFront,
@@ -286,5 +286,24 @@ describe('speed of a front', () => {
     expect(frontSpeed(flux, mean, bed * 515) * 3600).toBeLessThan(0.424);
     expect(frontSpeed(flux, air.heatCapacity(773.15), bed) * 3600).toBeGreaterThan(0.424);
     expect(frontSpeed(-7 / area, 1511.8, 2.773e6)).toBeLessThan(0);
+  });
+});
+
+describe('expected growth of a front', () => {
+  it('is the published asymptotic width of the two-phase solution', () => {
+    // Schumann: 10-90 % width 2.5631 sqrt(2 tau) in xi = x hv/(G cf), tau = xi travelled; in sigmas
+    // 10-90 % is 2.5631, so sigma^2 = 2 tau (G cf/hv)^2 = 2 lag travel.
+    const lag = 0.025;
+    const tau = 1000;
+    const sigma = Math.sqrt(frontSpread(tau * lag, lag, 0, 1e6, 3600)) / lag;
+    expect(2.5631 * sigma).toBeCloseTo(2.5631 * Math.sqrt(2 * tau), 9);
+    // The published width at tau 1000 is 114.611; what it lacks to the asymptote is of order 1/tau.
+    expect(Math.abs(2.5631 * sigma - 114.611) / 114.611).toBeLessThan(1e-3);
+  });
+
+  it('goes on while the gas stands, by conduction, and never shrinks', () => {
+    expect(frontSpread(0, 0, 1.4, 1.7e6, 86400)).toBeCloseTo((2 * 1.4 * 86400) / 1.7e6, 12);
+    expect(frontSpread(-0.01, -0.02, 0, 1e6, 30)).toBeCloseTo(4e-4, 15);
+    expect(() => frontSpread(0.1, 0, -1, 1e6, 30)).toThrow(/conductivity_W_mK.*-1/);
   });
 });
