@@ -15,8 +15,9 @@ export function startProgress(label: string, total: number): Progress {
   if (!process.stderr.isTTY || !(total > 0)) return SILENT;
   const bar = new cliProgress.SingleBar({
     stream: process.stderr,
-    // Left visible: after an interrupt nothing has to be put back.
+    // Neither hidden nor unwrapped: after a kill nothing has to be put back.
     hideCursor: false,
+    linewrap: true,
     etaBuffer: 100,
     format: (options, params) => {
       const { BarFormat: drawn, TimeFormat: time } = cliProgress.Format;

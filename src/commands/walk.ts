@@ -1,9 +1,13 @@
 import { statSync } from 'node:fs';
+import { setImmediate } from 'node:timers/promises';
 import { RecordingReader } from '../adapters/recording/reader.js';
 import type { UnitDefinition } from '../core/definitions.js';
 import type { Scan } from '../core/scan/scan.js';
 import { withoutControls } from '../errors.js';
 import { startProgress } from './progress.js';
+
+/** Longest time without a turn of the event loop [ms]. */
+const TURN_MS = 100;
 
 /** The file's size for the progress bar; a file that cannot be read is told by the reader. */
 function size(path: string): number {
@@ -26,9 +30,19 @@ export async function walkRecording(
   const reader = new RecordingReader(path, unit, { otherChannels });
   const progress = startProgress(unit.id, size(path));
   try {
+    let done = 0;
+    let turned_ms = performance.now();
     for await (const scans of reader.batches()) {
-      for (const scan of scans) if ((await visit(scan)) === false) return reader;
-      progress.update(reader.counts.bytes);
+      const step = (reader.counts.bytes - done) / scans.length;
+      for (const scan of scans) {
+        if ((await visit(scan)) === false) return reader;
+        done += step;
+        progress.update(done);
+        if (performance.now() - turned_ms < TURN_MS) continue;
+        // A turn of the event loop, or an interrupt at the terminal would wait for the file.
+        await setImmediate();
+        turned_ms = performance.now();
+      }
     }
   } finally {
     progress.stop();
