@@ -45,7 +45,10 @@ export function showValue(value: unknown, path: Path): string {
   if (value === undefined) return 'nothing';
   if (value === null) return 'nothing (an empty value)';
   if (typeof value === 'number') return String(value);
-  if (typeof value === 'string') return shorten(`the text "${withoutLogin(value)}"`);
+  if (typeof value === 'string') {
+    const shown = path.at(-1) === 'url' ? value.replace(/^.*@/s, '(login not shown)@') : value;
+    return shorten(`the text "${withoutLogin(shown)}"`);
+  }
   if (typeof value === 'boolean') return `the truth value ${value}`;
   if (Array.isArray(value)) return `a list of ${value.length}`;
   if (typeof value === 'object') {
@@ -58,7 +61,7 @@ export function showValue(value: unknown, path: Path): string {
 
 /** Name and password in front of an @ in an address. */
 function withoutLogin(text: string): string {
-  return text.replace(/:\/\/.*@/, '://(login not shown)@');
+  return text.replace(/:\/\/.*@/s, '://(login not shown)@');
 }
 
 function shorten(text: string): string {

@@ -1,6 +1,7 @@
-import type { z } from 'zod';
+import { z } from 'zod';
 import { type Path, pathText } from './faults.js';
-import { bare, isBlock, isRequired, noteOf, schemaAt, valueAt } from './schemaWalk.js';
+import { nearest } from './nearest.js';
+import { bare, isBlock, isRequired, noteOf, schemaAt, settle, valueAt } from './schemaWalk.js';
 import { type RawFault, structureFaults } from './structure.js';
 
 /**
@@ -33,7 +34,16 @@ function mend(schema: z.ZodType, root: unknown, fault: RawFault, invented: Path[
   const parentPath = fault.path.slice(0, -1);
   const parent = valueAt(root, parentPath);
   if (last === undefined || parent === null || typeof parent !== 'object') return false;
-  if (fault.atKey) return Reflect.deleteProperty(parent, last);
+  if (fault.atKey) {
+    if (typeof fault.meant === 'string' && isBlock(parent)) parent[fault.meant] = parent[last];
+    return Reflect.deleteProperty(parent, last);
+  }
+  const chooser = choosing(schema, root, parentPath, last);
+  if (chooser !== null) {
+    // Which branch was meant is a guess, so the whole block is no ground for conclusions.
+    invented.push(parentPath);
+    return Reflect.set(parent, last, chooser);
+  }
   invented.push(fault.path);
   const rule = schemaAt(schema, root, fault.path);
   if (rule === null) return false;
@@ -41,6 +51,20 @@ function mend(schema: z.ZodType, root: unknown, fault: RawFault, invented: Path[
   const example = noteOf(rule).examples?.[0];
   if (example === undefined || bare(rule).safeParse(example).success === false) return false;
   return Reflect.set(parent, last, structuredClone(example));
+}
+
+/** A word that chooses a branch, where the faulty key is the one that should; else null. */
+function choosing(schema: z.ZodType, root: unknown, block: Path, key: string | number): unknown {
+  const rule = schemaAt(schema, root, block);
+  if (rule === null) return null;
+  const union = settle(rule, valueAt(root, block));
+  if (!(union instanceof z.ZodDiscriminatedUnion) || union.def.discriminator !== key) return null;
+  const words = (union.options as readonly z.ZodObject[]).flatMap((option) => {
+    const literal = option.shape[key];
+    return literal instanceof z.ZodLiteral ? [...literal.values].map(String) : [];
+  });
+  const found = valueAt(root, [...block, key]);
+  return (typeof found === 'string' ? nearest(found, words) : null) ?? words[0] ?? null;
 }
 
 /** True where a conclusion rests on a place that was invented. */

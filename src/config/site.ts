@@ -57,6 +57,11 @@ export interface SiteConfig {
   readonly sources: readonly ChannelSource[];
   /** How long after its nominal end a scan waits for missing readings [s]. */
   readonly scan_deadline_s: number;
+  /**
+   * A reading stamped further ahead of this machine's clock than this is counted and not used [s];
+   * without it 300.
+   */
+  readonly clock_tolerance_s?: number;
   readonly mqtt: MqttConfig;
   readonly influx: InfluxConfig | null;
   readonly store: StoreConfig;

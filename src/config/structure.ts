@@ -12,6 +12,8 @@ export interface RawFault {
   readonly found: string;
   readonly expected: string;
   readonly hint: string | null;
+  /** For a key that should not be there: the free key that was probably meant. */
+  readonly meant?: string | null;
 }
 
 type Issue = z.core.$ZodIssue;
@@ -20,7 +22,20 @@ type Issue = z.core.$ZodIssue;
 export function structureFaults(schema: z.ZodType, data: unknown): RawFault[] {
   const result = schema.safeParse(data);
   if (result.success) return [];
-  return result.error.issues.flatMap((issue) => faultsOf(schema, data, issue, []));
+  const faults = result.error.issues.flatMap((issue) => faultsOf(schema, data, issue, []));
+  // A misspelt key is one slip: that the right one is missing need not be said as well.
+  const meant = new Set(
+    faults.flatMap((f) =>
+      typeof f.meant === 'string' ? [pathText([...f.path.slice(0, -1), f.meant])] : [],
+    ),
+  );
+  // A value may miss two bounds of its range: one fault names the whole range.
+  const seen = new Set<string>();
+  return faults.filter((f) => {
+    const place = pathText(f.path);
+    if (seen.has(place) || (!f.atKey && meant.has(place))) return false;
+    return seen.add(place);
+  });
 }
 
 function faultsOf(root: z.ZodType, data: unknown, issue: Issue, prefix: Path): RawFault[] {
@@ -87,7 +102,8 @@ function unknownKey(root: z.ZodType, data: unknown, path: Path, key: string): Ra
   const known = here instanceof z.ZodObject ? Object.keys(here.shape) : [];
   const block = valueAt(data, path);
   const free = known.filter((k) => !(isBlock(block) && Object.hasOwn(block, k)));
-  const near = nearest(key, free) ?? nearest(key, known);
+  const meant = nearest(key, free);
+  const near = meant ?? nearest(key, known);
   const where = path.length === 0 ? 'at the top level' : `in ${pathText(path)}`;
   return {
     path: [...path, key],
@@ -95,6 +111,7 @@ function unknownKey(root: z.ZodType, data: unknown, path: Path, key: string): Ra
     found: 'a key that is not known here',
     expected: known.length === 0 ? 'no such key' : `${where} the keys ${known.join(', ')}`,
     hint: keyHint(key, known, near),
+    meant,
   };
 }
 

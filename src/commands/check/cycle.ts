@@ -39,6 +39,11 @@ export interface SettledCycle {
   readonly discharge: HalfCycle;
 }
 
+/** Power of a direction in the facts: a charge takes what it may, a discharge gives what is sold. */
+export function cyclePower_W(unit: UnitDefinition, direction: Direction): number {
+  return direction === 'charge' ? unit.limits.charge.power_max_W : unit.rated_power_W;
+}
+
 interface Bed {
   readonly store: StoreDefinition;
   readonly tables: BedTables;
@@ -47,8 +52,8 @@ interface Bed {
 }
 
 /**
- * Charges and discharges the whole unit at rated power, with the model of the bed and the machine,
- * from limit to limit until the cycle repeats itself; gives the last one. One tube per store,
+ * Charges at the greatest power and discharges at rated power, with the models of the beds and the
+ * machine, from limit to limit until the cycle repeats itself; gives the last one. One tube per store,
  * with losses, no standing between, steel and plenums left out. A charge without a rule of its
  * own ends where the outlet has gone half the way to the other reference.
  */
@@ -87,7 +92,7 @@ function run(
   direction: Direction,
 ): HalfCycle {
   const range = unit.limits[direction];
-  const power_W = Math.min(Math.max(unit.rated_power_W, range.power_min_W), range.power_max_W);
+  const power_W = cyclePower_W(unit, direction);
   const outlet = new Map(beds.map((bed) => [bed.store.kind, standingOutlet_K(bed, direction)]));
   let energy_J = 0;
   let time_s = 0;

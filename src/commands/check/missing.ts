@@ -60,13 +60,11 @@ export function missingChannels(unit: UnitDefinition, machine: Machine): Missing
         'an inlet that differs from the model is learned from the first thermocouples only; the outlet limit is watched on the estimate',
       );
     }
-    if (!measured('pressure')) {
+    if (!measured('pressure') && store.bed.fluid.phase === 'gas') {
       add(
         `pressure, ${store.id}`,
         `${(store.bed.pressure_Pa / 1e5).toFixed(2)} bar of the configuration`,
-        store.bed.fluid.phase === 'gas'
-          ? 'lost gas inventory is not seen, and the expected pressure drop goes with 1/pressure'
-          : 'nothing for a liquid',
+        'lost gas inventory is not seen, and the expected pressure drop goes with 1/pressure',
       );
     }
     if (!measured('pressure_drop')) {

@@ -1,5 +1,7 @@
 import type { UnitDefinition } from '../../core/definitions.js';
+import type { Machine } from '../../core/machine/machine.js';
 import { ZERO_CELSIUS_K } from '../../core/units.js';
+import { referenceOutlets } from './referenceOutlets.js';
 import type { UnitFacts } from './unitFacts.js';
 
 /** Below this distance to the dew point [K] droplets may form in a cold corner. */
@@ -12,10 +14,12 @@ const REFERENCE_SHARE = 0.03;
 /** Things in a sound configuration that a person should look at. */
 export function notesOf(
   unit: UnitDefinition,
+  machine: Machine,
   facts: Omit<UnitFacts, 'missing' | 'notes'>,
 ): string[] {
   return [
     ...ratedNotes(facts),
+    ...capNotes(unit, machine),
     ...unit.stores.flatMap((store, s) => storeNotes(unit, store, facts, s)),
   ];
 }
@@ -39,6 +43,23 @@ function ratedNotes(facts: Omit<UnitFacts, 'missing' | 'notes'>): string[] {
   return notes;
 }
 
+/**
+ * Towards the end of a charge the cold outlet falls, and with it what the compressor sends on top
+ * of the hot store: a discharge begins with that gas.
+ */
+function capNotes(unit: UnitDefinition, machine: Machine): string[] {
+  const { charge_cold_outlet_min_K: cold_K, hot_outlet_min_K: least_K } = unit.limits;
+  if (cold_K === null || least_K === null) return [];
+  const outlets = { ...referenceOutlets(unit, 'charge'), cold_K };
+  const sent_K = machine.operate('charge', outlets, unit.ambient_K).inlets.hot_K;
+  if (sent_K >= least_K) return [];
+  return [
+    `a charge down to charge_cold_outlet_min_degC ends with ${degC(sent_K)} into the hot store, below hot_outlet_min_degC (${degC(least_K)}): the discharge after it would end at once`,
+  ];
+}
+
+const degC = (kelvin: number) => `${(kelvin - ZERO_CELSIUS_K).toFixed(0)} degC`;
+
 function storeNotes(
   unit: UnitDefinition,
   store: UnitDefinition['stores'][number],
@@ -48,7 +69,6 @@ function storeNotes(
   const f = facts.stores[s]!;
   const { bed } = store;
   const notes: string[] = [];
-  const degC = (kelvin: number) => `${(kelvin - ZERO_CELSIUS_K).toFixed(0)} degC`;
   if (f.dew_point_degC !== null && f.coldest_degC - f.dew_point_degC < DEW_MARGIN_K) {
     notes.push(
       `HAZARD: the gas in ${f.id} comes within ${(f.coldest_degC - f.dew_point_degC).toFixed(0)} K of its dew point`,
@@ -71,7 +91,7 @@ function storeNotes(
     const low = f.coldest_degC + ZERO_CELSIUS_K;
     if (low < range[0] - 0.5 || store.reference_hot_K > range[1] + 0.5) {
       notes.push(
-        `${f.id}: the data of ${what} cover ${degC(range[0])} to ${degC(range[1])}, the store runs from ${degC(low)} to ${degC(store.reference_hot_K)}`,
+        `${f.id}: the data of ${what} cover ${degC(range[0])} to ${degC(range[1])}, the store runs from ${degC(low)} to ${degC(store.reference_hot_K)}; beyond the data the model continues them`,
       );
     }
   }

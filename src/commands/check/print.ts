@@ -106,7 +106,7 @@ function hoursText(unit: UnitFacts): string {
       ? `${(100 * spare).toFixed(0)} % more than the rated ${unit.rated_hours_h} h`
       : `${(-100 * spare).toFixed(0)} % less than the rated ${unit.rated_hours_h} h`;
   return [
-    'Settled cycle at rated power, limit to limit, from the models of bed and machine',
+    'Settled cycle: charge at greatest, discharge at rated power, each to its limit (models of bed and machine)',
     rows(['charge', 'discharge'], body),
     `Discharge: ${verdict}. Round trip ${(100 * unit.round_trip).toFixed(1)} % of electricity.`,
     `Were the fronts sharp, full stores would last ${Object.entries(unit.plug_flow_hours)
@@ -147,7 +147,7 @@ function storesText(stores: readonly StoreFacts[]): string {
     num('Pressure drop, discharged', 'kPa', (s) => s.pressure_drop_discharged_kPa),
     num('Standing loss when full', 'kW_th', (s) => s.standing_loss_kW),
     num('  of the capacity', '%/d', (s) => s.standing_loss_percent_d),
-    num('Coldest gas', 'degC', (s) => s.coldest_degC),
+    num('Coldest fluid', 'degC', (s) => s.coldest_degC),
     num('Dew point of the gas', 'degC', (s) => s.dew_point_degC),
     each('Strings x thermocouples', '', (s) => layoutWords(s)),
     each('Area shares', '', (s) => s.strings.map((q) => q.area_share.toFixed(2)).join(' + ')),

@@ -1,13 +1,13 @@
 import type { Direction, StoreDefinition, UnitDefinition } from '../../core/definitions.js';
 import { createMachine, type Machine } from '../../core/machine/machine.js';
 import { ZERO_CELSIUS_K } from '../../core/units.js';
-import { type SettledCycle, settledCycle } from './cycle.js';
+import { cyclePower_W, type SettledCycle, settledCycle } from './cycle.js';
 import { type MissingChannel, missingChannels } from './missing.js';
 import { notesOf } from './notes.js';
 import { referenceOutlets } from './referenceOutlets.js';
 import { type StoreFacts, storeFacts } from './storeFacts.js';
 
-/** One direction of the machine at rated power, the stores at their references. */
+/** One direction of the machine at its power in the cycle, the stores at their references. */
 export interface DirectionFacts {
   readonly power_MW_el: number;
   readonly specific_work_kJ_kg: number;
@@ -58,7 +58,11 @@ export function unitFacts(unit: UnitDefinition): UnitFacts {
     round_trip: cycle.discharge.energy_MWh_el / cycle.charge.energy_MWh_el,
     stores,
   };
-  return { ...facts, missing: missingChannels(unit, machine), notes: notesOf(unit, facts) };
+  return {
+    ...facts,
+    missing: missingChannels(unit, machine),
+    notes: notesOf(unit, machine, facts),
+  };
 }
 
 function directionFacts(
@@ -67,8 +71,7 @@ function directionFacts(
   direction: Direction,
 ): DirectionFacts {
   const outlets = referenceOutlets(unit, direction);
-  const range = unit.limits[direction];
-  const power_W = Math.min(Math.max(unit.rated_power_W, range.power_min_W), range.power_max_W);
+  const power_W = cyclePower_W(unit, direction);
   const point = machine.operate(direction, outlets, unit.ambient_K);
   const answer = machine.flowForPower(direction, power_W, outlets, unit.ambient_K);
   const { hot_K, cold_K } = point.inlets;
