@@ -1,11 +1,5 @@
-import { stagnantConductivity } from '../core/bed/bedConductivity.js';
-import {
-  filmFlow,
-  filmStill,
-  particleResistance,
-  surfacePerVolume,
-} from '../core/bed/heatTransfer.js';
 import type { BedDefinition } from '../core/definitions.js';
+import { film, insideResistance, standingConductivity, surfacePerVolume } from './transferLaws.js';
 
 /** Tables of a bed of the demonstration plant over temperature and enthalpy, made once. */
 export interface BedProperties {
@@ -42,10 +36,11 @@ export function bedProperties(bed: BedDefinition): BedProperties {
     heat[i] =
       solid * bed.solid.enthalpy(T) +
       (liquid > 0 ? liquid * fluid.density_kg_m3(T, bed.pressure_Pa) * fluid.enthalpy(T) : 0);
-    still[i] = filmStill(bed, T);
-    flow[i] = filmFlow(bed, T);
-    resistance[i] = particleResistance(bed, T);
-    conductivity[i] = bed.conductivity_factor * stagnantConductivity(bed, T);
+    const own = film(bed, T);
+    still[i] = own.still;
+    flow[i] = own.flow;
+    resistance[i] = insideResistance(bed, T);
+    conductivity[i] = bed.conductivity_factor * standingConductivity(bed, T);
   }
   const surface = surfacePerVolume(bed) * bed.heat_transfer_factor;
   const first = heat[0] as number;
@@ -85,8 +80,8 @@ export function bedProperties(bed: BedDefinition): BedProperties {
     },
     transfer(T, flux06) {
       const i = nearest(T);
-      const film = (still[i] as number) + flux06 * (flow[i] as number);
-      return surface / (1 / film + (resistance[i] as number));
+      const h = (still[i] as number) + flux06 * (flow[i] as number);
+      return surface / (1 / h + (resistance[i] as number));
     },
     conductivity: (T) => conductivity[nearest(T)] as number,
   };

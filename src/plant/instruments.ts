@@ -1,9 +1,9 @@
-import { pressureDrop } from '../core/bed/pressureDrop.js';
 import type { ChannelDefinition, UnitDefinition } from '../core/definitions.js';
-import { CELLS } from './plantBed.js';
+import { CELLS } from './bedState.js';
 import type { PlantStore } from './plantStore.js';
 import type { Random } from './random.js';
 import { toRaw } from './rawUnits.js';
+import { pressureDrop } from './transferLaws.js';
 
 /** What the instruments look at. */
 export interface PlantView {
@@ -166,7 +166,7 @@ export class Instruments {
           pressureDrop(
             definition.bed,
             flow / definition.bed.area_m2,
-            bed.rock_K.subarray(0, CELLS),
+            bed.gas_K.subarray(0, CELLS),
           ) *
           (1 + 0.01 * z)
         );

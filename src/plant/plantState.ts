@@ -21,8 +21,9 @@ export interface PlantState {
 
 export type PlantStop = 'hot_outlet' | 'cold_outlet' | 'flow' | 'empty' | 'full';
 
-/** Longest inner step [s]: a third of the time in which rock follows gas. */
+/** Longest inner step [s]: a tenth of the time in which rock follows gas; looking ahead twice that. */
 const STEP_S = 15;
+const AHEAD_STEP_S = 30;
 /** Outlet rules wait for the gas that stood under the lid to be swept out [s]. */
 const SWEEP_S = 600;
 
@@ -56,8 +57,9 @@ export function advancePlant(
   power_W: number,
   duration_s: number,
   each?: (dt_s: number) => void,
+  longestStep_s = STEP_S,
 ): PlantStop | null {
-  const parts = Math.max(1, Math.ceil(duration_s / STEP_S - 1e-9));
+  const parts = Math.max(1, Math.ceil(duration_s / longestStep_s - 1e-9));
   const dt = duration_s / parts;
   let stop: PlantStop | null = null;
   for (let i = 0; i < parts && stop === null; i++) {
@@ -125,14 +127,15 @@ function outletRule(state: PlantState, charging: boolean): PlantStop | null {
   return null;
 }
 
-/** True hours at a constant net power [W] from a state, by running a copy on; resolution one inner step. */
+/** True hours at a constant net power [W] from a state, by running a copy on; resolution half a minute. */
 export function hoursFrom(state: PlantState, power_W: number): number {
   if (!(power_W > 0)) throw new RangeError(`power_W must be positive, got ${power_W}`);
   const ahead = copyState(state);
   const start = ahead.time_s;
   const horizon_s = 200 * 3600;
   while (ahead.time_s - start < horizon_s) {
-    if (advancePlant(ahead, 'discharge', power_W, STEP_S) !== null) break;
+    if (advancePlant(ahead, 'discharge', power_W, AHEAD_STEP_S, undefined, AHEAD_STEP_S) !== null)
+      break;
   }
   return (ahead.time_s - start) / 3600;
 }

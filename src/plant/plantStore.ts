@@ -1,6 +1,7 @@
 import type { StoreDefinition } from '../core/definitions.js';
 import { bedProperties } from './bedProperties.js';
-import { CELLS, copyBed, fillBed, type PlantBed, stepBed } from './plantBed.js';
+import { CELLS, copyBed, fillBed, type PlantBed } from './bedState.js';
+import { stepBed } from './plantBed.js';
 import type { Random } from './random.js';
 
 /** One store of the demonstration plant with its gas ends. */
@@ -46,6 +47,8 @@ export function createPlantStore(definition: StoreDefinition, random: Random): P
     gas_K: new Float64Array(cells),
     ends_K: new Float64Array(2),
     transferFactor: 1 + 0.1 * (2 * random.uniform() - 1),
+    gasHeat_J: 0,
+    lostHeat_J: 0,
   };
   const [full, empty] = endTemperatures(definition);
   const width = Math.min(START_WIDTH_M, 0.1 * bed.length_m) / Math.atanh(0.68);

@@ -9,6 +9,7 @@ export interface BedParameters {
   readonly diameter_m: number;
   readonly particle_diameter_m: number;
   readonly void_fraction: number;
+  readonly particle_shape: 'crushed' | 'sphere';
   readonly solid: TruthSolid;
   readonly fluid: TruthFluid;
   readonly pressure_Pa: number;
@@ -99,6 +100,7 @@ export class BedConstants {
           d,
           p.void_fraction,
           solid.emissivity,
+          p.particle_shape,
         ),
     );
   }

@@ -36,10 +36,11 @@ export function stringsOf(
 const hot: StoreGeometry = {
   id: 'hot',
   kind: 'hot',
-  length_m: 8,
-  diameter_m: 6,
+  length_m: 9.2,
+  diameter_m: 6.6,
   particle_diameter_m: 0.02,
   void_fraction: 0.4,
+  particle_shape: 'crushed',
   solid: 'granite',
   fluid: 'argon',
   pressure_Pa: 7.9e5,
@@ -50,23 +51,24 @@ const hot: StoreGeometry = {
   end_capacity_J_K: [9e5, 9e5],
   strings: stringsOf(
     'hot',
-    3,
+    3.3,
     [
       { id: 'axis', radius_m: 0.5, group: 'card_h1' },
-      { id: 'middle', radius_m: 1.6, group: 'card_h2' },
-      { id: 'rim', radius_m: 2.6, group: 'card_h3' },
+      { id: 'middle', radius_m: 1.8, group: 'card_h2' },
+      { id: 'rim', radius_m: 2.9, group: 'card_h3' },
     ],
-    [0.4, 0.95, 1.5, 2.05, 2.6, 3.15, 3.7, 4.25, 4.8, 5.35, 5.9, 6.45, 7.0, 7.55],
+    [0.45, 1.09, 1.73, 2.37, 3.01, 3.65, 4.29, 4.93, 5.57, 6.21, 6.85, 7.49, 8.13, 8.77],
   ),
 };
 
 const cold: StoreGeometry = {
   id: 'cold',
   kind: 'cold',
-  length_m: 7.6,
-  diameter_m: 7.4,
+  length_m: 9.2,
+  diameter_m: 8.2,
   particle_diameter_m: 0.02,
   void_fraction: 0.4,
+  particle_shape: 'crushed',
   solid: 'basalt',
   fluid: 'argon',
   pressure_Pa: 1.04e5,
@@ -77,13 +79,13 @@ const cold: StoreGeometry = {
   end_capacity_J_K: [1.2e6, 1.2e6],
   strings: stringsOf(
     'cold',
-    3.7,
+    4.1,
     [
       { id: 'axis', radius_m: 0.6, group: 'card_c1' },
-      { id: 'middle', radius_m: 2.0, group: 'card_c2' },
-      { id: 'rim', radius_m: 3.2, group: 'card_c3' },
+      { id: 'middle', radius_m: 2.2, group: 'card_c2' },
+      { id: 'rim', radius_m: 3.6, group: 'card_c3' },
     ],
-    [0.36, 0.89, 1.42, 1.95, 2.48, 3.01, 3.54, 4.07, 4.6, 5.13, 5.66, 6.19, 6.72, 7.25],
+    [0.45, 1.09, 1.73, 2.37, 3.01, 3.65, 4.29, 4.93, 5.57, 6.21, 6.85, 7.49, 8.13, 8.77],
   ),
 };
 
@@ -93,11 +95,11 @@ export const DEMO_GEOMETRY: PlantGeometry = {
   rated_power_W: 1.8e6,
   /** About the flow at rated power with full stores. */
   rated_flow_kg_s: 22,
-  flow_max_kg_s: 30,
-  hot_outlet_min_K: 340 + ZERO_K,
-  cold_outlet_max_K: -70 + ZERO_K,
-  charge_hot_outlet_max_K: 120 + ZERO_K,
-  charge_cold_outlet_min_K: -20 + ZERO_K,
+  flow_max_kg_s: 36,
+  hot_outlet_min_K: 360 + ZERO_K,
+  cold_outlet_max_K: -95 + ZERO_K,
+  charge_hot_outlet_max_K: 150 + ZERO_K,
+  charge_cold_outlet_min_K: -10 + ZERO_K,
   stores: [hot, cold],
   machine: {
     kind: 'gas_cycle',

@@ -8,6 +8,7 @@ export interface StoreGeometry {
   readonly diameter_m: number;
   readonly particle_diameter_m: number;
   readonly void_fraction: number;
+  readonly particle_shape: 'crushed' | 'sphere';
   /** Name in solids.ts, or a solid of the caller's own. */
   readonly solid: string | TruthSolid;
   readonly fluid: 'argon' | 'air' | 'salt';

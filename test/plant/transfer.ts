@@ -7,7 +7,7 @@ const STEFAN_BOLTZMANN = 5.670374419e-8;
  * k/kf = 1 - sqrt(1-e) + e (1 - sqrt(1-e)) kr + sqrt(1-e) [phi kp + (1-phi) kc],
  * kc = 2/N { B (kp+kr-1)/(N^2 kp) ln((kp+kr)/B) + (B+1)/(2B) (kr-B) - (B-1)/N },
  * N = 1 + (kr-B)/kp, B = Cf ((1-e)/e)^(10/9), kr = 4 sigma T^3 d/((2/emissivity - 1) kf).
- * Shape Cf = 1.4, flattening phi = 0.001 (crushed rock).
+ * Crushed rock: Cf = 1.4, flattened contact phi = 0.001; spheres: 1.25, 0.0077.
  */
 export function bedConductivity(
   temperature_K: number,
@@ -16,11 +16,13 @@ export function bedConductivity(
   diameter_m: number,
   voidFraction: number,
   emissivity: number,
+  shape: 'crushed' | 'sphere' = 'crushed',
 ): number {
+  const [form, flat] = shape === 'crushed' ? [1.4, 0.001] : [1.25, 0.0077];
   const kp = solid_W_mK / fluid_W_mK;
   const kr =
     (4 * STEFAN_BOLTZMANN * temperature_K ** 3 * diameter_m) / ((2 / emissivity - 1) * fluid_W_mK);
-  const B = 1.4 * ((1 - voidFraction) / voidFraction) ** (10 / 9);
+  const B = form * ((1 - voidFraction) / voidFraction) ** (10 / 9);
   const N = 1 + (kr - B) / kp;
   const core =
     (2 / N) *
@@ -28,7 +30,6 @@ export function bedConductivity(
       ((B + 1) / (2 * B)) * (kr - B) -
       (B - 1) / N);
   const root = Math.sqrt(1 - voidFraction);
-  const flat = 0.001;
   return (
     fluid_W_mK * ((1 - root) * (1 + voidFraction * kr) + root * (flat * kp + (1 - flat) * core))
   );
