@@ -17,8 +17,8 @@ ENV NODE_ENV=production \
 # A fixed number, so that a volume's owner can be set from outside.
 RUN groupadd --gid 10001 rockhour \
  && useradd --uid 10001 --gid rockhour --home-dir /data --no-create-home --shell /usr/sbin/nologin rockhour \
- && mkdir /data /config \
- && chown rockhour:rockhour /data
+ && mkdir -p /data /config /app/var \
+ && chown rockhour:rockhour /data /app/var
 COPY --from=build /app/node_modules /app/node_modules
 COPY --from=build /app/dist /app/dist
 COPY package.json /app/package.json
