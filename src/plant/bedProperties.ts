@@ -8,6 +8,9 @@ export interface BedProperties {
   temperatureAt(heat_J_m3: number): number;
   /** Volumetric heat transfer [W/m3K] before the plant's own factor, at a mass flux [kg/m2s]. */
   transfer(temperature_K: number, flux06: number): number;
+  /** Enthalpy of the gas [J/kg] and its slope [J/kgK]: straight lines between whole kelvins. */
+  gasEnthalpy(temperature_K: number): number;
+  gasCapacity(temperature_K: number): number;
   /** Conductivity of the standing bed [W/mK]. */
   conductivity(temperature_K: number): number;
 }
@@ -31,12 +34,14 @@ export function bedProperties(bed: BedDefinition): BedProperties {
   const flow = new Float64Array(COUNT);
   const resistance = new Float64Array(COUNT);
   const conductivity = new Float64Array(COUNT);
+  const gas = new Float64Array(COUNT);
   for (let i = 0; i < COUNT; i++) {
     const T = LOW_K + i * STEP_K;
     heat[i] =
       solid * bed.solid.enthalpy(T) +
       (liquid > 0 ? liquid * fluid.density_kg_m3(T, bed.pressure_Pa) * fluid.enthalpy(T) : 0);
     const own = film(bed, T);
+    gas[i] = fluid.enthalpy(T);
     still[i] = own.still;
     flow[i] = own.flow;
     resistance[i] = insideResistance(bed, T);
@@ -82,6 +87,18 @@ export function bedProperties(bed: BedDefinition): BedProperties {
       const i = nearest(T);
       const h = (still[i] as number) + flux06 * (flow[i] as number);
       return surface / (1 / h + (resistance[i] as number));
+    },
+    gasEnthalpy(T) {
+      nearest(T);
+      const y = (T - LOW_K) / STEP_K;
+      const i = y | 0;
+      const a = gas[i] as number;
+      return a + (y - i) * ((gas[i + 1] as number) - a);
+    },
+    gasCapacity(T) {
+      nearest(T);
+      const i = ((T - LOW_K) / STEP_K) | 0;
+      return ((gas[i + 1] as number) - (gas[i] as number)) / STEP_K;
     },
     conductivity: (T) => conductivity[nearest(T)] as number,
   };

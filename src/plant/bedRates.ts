@@ -40,7 +40,7 @@ export function relaxation(plant: PlantBed, flux: number, E: Float64Array, M: Fl
     for (let j = s * CELLS; j < (s + 1) * CELLS; j++) {
       const T = rock_K[j] as number;
       const hv = plant.transferFactor * properties.transfer(T, flux06);
-      const n = (hv * dx) / (own * bed.fluid.heatCapacity(T));
+      const n = (hv * dx) / (own * properties.gasCapacity(T));
       const lost = -Math.expm1(-n);
       E[j] = 1 - lost;
       M[j] = lost / n;
@@ -62,15 +62,14 @@ export function rates(
   M: Float64Array,
   out: Rates,
 ): void {
-  const { bed, rock_K, gas_K, areaShares, flowShares } = plant;
-  const { fluid } = bed;
+  const { bed, properties, rock_K, gas_K, areaShares, flowShares } = plant;
   const dx = bed.length_m / CELLS;
   out.heat.fill(0);
   out.ends.fill(0);
   out.lost = 0;
   out.outletEnthalpy = 0;
   const G = Math.abs(flux);
-  const inletEnthalpy = fluid.enthalpy(inlet_K);
+  const inletEnthalpy = properties.gasEnthalpy(inlet_K);
   for (let s = 0; s < areaShares.length && G > 0; s++) {
     const from = s * CELLS;
     const own = (G * (flowShares[s] as number)) / (areaShares[s] as number);
@@ -83,7 +82,7 @@ export function rates(
       const Ts = rock_K[j] as number;
       const half = flux > 0 ? (slope[i] as number) : -(slope[i] as number);
       const Tout = Ts + half - 2 * half * (M[j] as number) + (Tin - Ts + half) * (E[j] as number);
-      const hout = fluid.enthalpy(Tout);
+      const hout = properties.gasEnthalpy(Tout);
       out.heat[j] = (own * (hin - hout)) / dx;
       gas_K[j] = 0.5 * (Tin + Tout);
       Tin = Tout;
@@ -104,7 +103,7 @@ function addConduction(plant: PlantBed, G: number, heat: Float64Array): void {
   const dx = bed.length_m / CELLS;
   const tubes = areaShares.length;
   // Stirring by the flow: 0.5 Re Pr kf along and 0.1 Re Pr kf across, Re Pr kf = G d cf.
-  const stirred = G * bed.particle_diameter_m * bed.fluid.heatCapacity(rock_K[0] as number);
+  const stirred = G * bed.particle_diameter_m * properties.gasCapacity(rock_K[0] as number);
   for (let s = 0; s < tubes; s++) {
     for (let i = 0; i < CELLS - 1; i++) {
       const j = s * CELLS + i;

@@ -1,4 +1,4 @@
-import type { BedDefinition } from '../core/definitions.js';
+import type { BedProperties } from './bedProperties.js';
 import { createRates, endCapacity, rates, relaxation } from './bedRates.js';
 import { CELLS, type PlantBed } from './bedState.js';
 
@@ -47,9 +47,13 @@ export function stepBed(
   }
   plant.lostHeat_J += half * (first.lost + second.lost);
   if (flow_kg_s === 0) return Number.NaN;
-  const mixed = temperatureOf(bed, 0.5 * (first.outletEnthalpy + second.outletEnthalpy), inlet_K);
+  const mixed = temperatureOf(
+    properties,
+    0.5 * (first.outletEnthalpy + second.outletEnthalpy),
+    inlet_K,
+  );
   const outlet = passEnd(plant, 1 - inEnd, dt_s, flow_kg_s, mixed);
-  const given = bed.fluid.enthalpy(inlet_K) - bed.fluid.enthalpy(outlet);
+  const given = properties.gasEnthalpy(inlet_K) - properties.gasEnthalpy(outlet);
   plant.gasHeat_J += Math.abs(flow_kg_s) * dt_s * given;
   return outlet;
 }
@@ -84,19 +88,19 @@ function passEnd(
 ): number {
   const capacity = endCapacity(plant.bed, end);
   if (capacity === 0) return gas_K;
-  const g = Math.abs(flow_kg_s) * plant.bed.fluid.heatCapacity(gas_K) * END_CONTACT;
+  const g = Math.abs(flow_kg_s) * plant.properties.gasCapacity(gas_K) * END_CONTACT;
   const steel = plant.ends_K[end] as number;
   const after = gas_K + (steel - gas_K) * Math.exp((-g * dt_s) / capacity);
   plant.ends_K[end] = after;
   const left = (capacity * (after - steel)) / (Math.abs(flow_kg_s) * dt_s);
-  return temperatureOf(plant.bed, plant.bed.fluid.enthalpy(gas_K) - left, gas_K);
+  return temperatureOf(plant.properties, plant.properties.gasEnthalpy(gas_K) - left, gas_K);
 }
 
-function temperatureOf(bed: BedDefinition, enthalpy: number, guess_K: number): number {
+function temperatureOf(properties: BedProperties, enthalpy: number, guess_K: number): number {
   let T = guess_K;
   // cp varies slowly: Newton settles in two or three steps.
   for (let i = 0; i < 8; i++) {
-    const step = (enthalpy - bed.fluid.enthalpy(T)) / bed.fluid.heatCapacity(T);
+    const step = (enthalpy - properties.gasEnthalpy(T)) / properties.gasCapacity(T);
     T += step;
     if (Math.abs(step) < 1e-9) break;
   }

@@ -123,7 +123,7 @@ export class Bed {
     const capacity = this.p.end_capacity_J_K[end]!;
     if (capacity === 0) return gas_K;
     const { fluid } = this.c;
-    const g = massFlow * this.p.fluid.heatCapacity(gas_K);
+    const g = massFlow * this.c.gasCapacity.at(gas_K);
     const exchange = this.p.end_exchange_W_K * (massFlow / 10) ** 0.6;
     const k = g * (1 - Math.exp(-exchange / g));
     const heat = (k * dt_s * (gas_K - this.ends[end]!)) / (1 + (0.5 * k * dt_s) / capacity);
@@ -135,10 +135,7 @@ export class Bed {
   private conduct(dt_s: number, massFlow: number, ambient_K: number): void {
     const { p, c } = this;
     const stirred =
-      p.stirring_factor *
-      (massFlow / c.area_m2) *
-      p.particle_diameter_m *
-      p.fluid.heatCapacity(500);
+      p.stirring_factor * (massFlow / c.area_m2) * p.particle_diameter_m * c.gasCapacity.at(500);
     // Stable below 1/2; 250 J/kgK is less than any rock has above 100 K.
     const hottest = c.bedConductivity.at(900) + 0.5 * stirred;
     const stiffness = (2 * hottest) / (c.cellLength_m ** 2 * c.rockDensity * 250);

@@ -12,7 +12,6 @@ export interface BedParameters {
   readonly particle_shape: 'crushed' | 'sphere';
   readonly solid: TruthSolid;
   readonly fluid: TruthFluid;
-  readonly pressure_Pa: number;
   /** Share of the cross-section of each concentric ring, from the axis outwards; they sum to 1. */
   readonly ring_shares: readonly number[];
   readonly cells: number;
@@ -51,6 +50,7 @@ export class BedConstants {
   /** Film per volume of bed [W/m3K] = A(T) + G^0.6 B(T), Nu = 2 + 1.1 Pr^(1/3) Re^0.6 (Wakao & Kaguei 1982). */
   readonly filmA: TemperatureTable;
   readonly filmB: TemperatureTable;
+  readonly gasCapacity: TemperatureTable;
   readonly rockConductivity: TemperatureTable;
   readonly bedConductivity: TemperatureTable;
 
@@ -74,7 +74,7 @@ export class BedConstants {
     const { fluid, solid, particle_diameter_m: d } = p;
     this.rockDensity = solidShare * solid.density_kg_m3 * p.heat_capacity_factor;
     this.fluidCapacity = fluid.liquid
-      ? p.void_fraction * fluid.density(500, p.pressure_Pa) * fluid.heatCapacity(500)
+      ? p.void_fraction * fluid.density(500) * fluid.heatCapacity(500)
       : 0;
     this.rock = new EnthalpyTable(solid.heatCapacity);
     this.fluid = new EnthalpyTable(fluid.heatCapacity);
@@ -89,6 +89,7 @@ export class BedConstants {
       const reynoldsPart = (d / fluid.viscosity(T)) ** 0.6;
       return (surfaceArea * 1.1 * fluid.conductivity(T) * Math.cbrt(prandtl) * reynoldsPart) / d;
     });
+    this.gasCapacity = new TemperatureTable(fluid.heatCapacity);
     this.rockConductivity = new TemperatureTable((T) => solid.conductivity(T));
     this.bedConductivity = new TemperatureTable(
       (T) =>

@@ -20,11 +20,12 @@ export function march(
   inlet_K: number,
   forward: boolean,
 ): number {
-  const { cells, shells: S, fluid } = bed.p;
+  const { cells, shells: S } = bed.p;
   const { enthalpy, temperature, mean, gas, surface, scratch, c } = bed;
   const filmA = c.filmA.values;
   const filmB = c.filmB.values;
   const rockK = c.rockConductivity.values;
+  const gasC = c.gasCapacity.values;
   const flux06 = flux ** 0.6;
   const phi = bed.heatTransferFactor;
   const shellMass = c.rockDensity / S;
@@ -44,7 +45,7 @@ export function march(
     const base = k * S;
     const at = ((gas[k]! - 70) * 2 + 0.5) | 0;
     const film = phi * (filmA[at]! + flux06 * filmB[at]!);
-    const g = flowPerVolume * fluid.heatCapacity(Tin);
+    const g = flowPerVolume * gasC[((Tin - 70) * 2 + 0.5) | 0]!;
     const n = film / g;
     const w = n > 2 ? 1 - 1 / n : 0.5;
     const ks = rockK[((mean[k]! - 70) * 2 + 0.5) | 0]!;

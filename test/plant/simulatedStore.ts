@@ -1,6 +1,6 @@
 import { type Bed, createBed } from './bed.js';
 import type { PlantDraw } from './draws.js';
-import { FLUIDS } from './fluids.js';
+import { fluidAt } from './fluids.js';
 import { frontsOf, type TruthFront } from './fronts.js';
 import type { StoreGeometry } from './geometry.js';
 import { ThermocoupleArray } from './sensors.js';
@@ -70,7 +70,7 @@ export class SimulatedStore {
       return;
     }
     const own = draw.stores[geometry.id]!;
-    const fluid = FLUIDS[geometry.fluid]!;
+    const fluid = fluidAt(geometry.fluid, geometry.pressure_Pa);
     const solid = typeof geometry.solid === 'string' ? SOLIDS[geometry.solid] : geometry.solid;
     if (!solid) throw new RangeError(`solid ${String(geometry.solid)} is not known here`);
     this.layout = own.layout;
@@ -157,7 +157,7 @@ export class SimulatedStore {
     for (const T of profile) {
       sum += pressureGradient(
         flow_kg_s / area,
-        p.fluid.density(T, p.pressure_Pa),
+        p.fluid.density(T),
         p.fluid.viscosity(T),
         p.particle_diameter_m,
         p.void_fraction,

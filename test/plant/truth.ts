@@ -1,7 +1,7 @@
 import { type Cycle, type CyclePoint, cycleOf, flowForPower } from './cycle.js';
 import { type DrawOptions, drawPlant, type PlantDraw } from './draws.js';
 import { applyFaults, type PlantChange, type SensorFault } from './faults.js';
-import { FLUIDS } from './fluids.js';
+import { fluidAt } from './fluids.js';
 import type { PlantGeometry } from './geometry.js';
 import { RandomStream } from './random.js';
 import { NOISE } from './sensors.js';
@@ -134,7 +134,7 @@ export class Truth {
       meter: options.meter ?? 'random',
     });
     this.draw = options.adjust ? options.adjust(draw) : draw;
-    const fluid = FLUIDS[geometry.stores[0]!.fluid]!;
+    const fluid = fluidAt(geometry.stores[0]!.fluid, 0);
     this.cycle = cycleOf(geometry, this.draw.machine, fluid.heatCapacity);
     this.stores = geometry.stores.map((store) => new SimulatedStore(store, this.draw, resolution));
     for (const store of this.stores) {
