@@ -1,0 +1,89 @@
+/** Figures in words. A missing figure is a dash, never a zero. */
+
+export const DASH = '–';
+const MINUS = '−';
+
+export function fixed(value: number | null | undefined, digits: number): string {
+  if (value === null || value === undefined || !Number.isFinite(value)) return DASH;
+  const text = Math.abs(value).toFixed(digits);
+  // -0.004 with two digits is 0.00, not minus nothing.
+  return value < 0 && Number(text) !== 0 ? MINUS + text : text;
+}
+
+export function percent(share: number | null | undefined, digits = 1): string {
+  return share === null || share === undefined ? DASH : fixed(share * 100, digits);
+}
+
+/** A power as short as it can be said exactly: 2, 1.85. */
+export function power(power_MW: number): string {
+  return String(Math.round(power_MW * 1000) / 1000);
+}
+
+const two = (value: number) => String(value).padStart(2, '0');
+
+/** 4.95 h -> `4 h 57 min`. */
+export function hoursText(hours: number | null | undefined): string {
+  if (hours === null || hours === undefined || !Number.isFinite(hours)) return DASH;
+  const minutes = Math.round(hours * 60);
+  if (minutes < 60) return `${minutes} min`;
+  return `${Math.floor(minutes / 60)} h ${two(minutes % 60)} min`;
+}
+
+/** An age, rounded down so that it never says more than it is: `4 s`, `2 min 10 s`, `3 h 05 min`. */
+export function ageText(age_s: number | null): string {
+  if (age_s === null) return DASH;
+  const seconds = Math.max(0, Math.floor(age_s));
+  if (seconds < 60) return `${seconds} s`;
+  if (seconds < 3600) return `${Math.floor(seconds / 60)} min ${two(seconds % 60)} s`;
+  const minutes = Math.floor(seconds / 60);
+  if (minutes < 48 * 60) return `${Math.floor(minutes / 60)} h ${two(minutes % 60)} min`;
+  const hours = Math.floor(minutes / 60);
+  return `${Math.floor(hours / 24)} d ${hours % 24} h`;
+}
+
+/** Time of day where this browser stands. */
+export function clock(time: string | number): string {
+  const at = new Date(time);
+  return `${two(at.getHours())}:${two(at.getMinutes())}:${two(at.getSeconds())}`;
+}
+
+/** With the date, ISO order. */
+export function dateClock(time: string | number): string {
+  const at = new Date(time);
+  return `${at.getFullYear()}-${two(at.getMonth() + 1)}-${two(at.getDate())} ${clock(time)}`;
+}
+
+export function zoneText(at: Date): string {
+  const minutes = -at.getTimezoneOffset();
+  if (minutes === 0) return 'UTC';
+  const sign = minutes < 0 ? MINUS : '+';
+  const size = Math.abs(minutes);
+  return `UTC${sign}${two(Math.floor(size / 60))}:${two(size % 60)}`;
+}
+
+export const MODE_WORDS = {
+  charge: 'charging',
+  discharge: 'discharging',
+  stand: 'standing',
+} as const;
+
+export const END_WORDS = {
+  hot_outlet: 'hot outlet too cool',
+  cold_outlet: 'cold outlet too warm',
+  flow: 'greatest flow reached',
+  pressure_drop: 'greatest pressure drop reached',
+  empty: 'store empty',
+} as const;
+
+export const REASON_WORDS = {
+  uniform: 'no front: the bed is uniform',
+  no_half_crossing: 'no front: half the range is not crossed within the bed',
+  not_started: 'no front yet',
+} as const;
+
+export const QUALITY_WORDS = {
+  good: 'good',
+  degraded: 'degraded: some readings are left out',
+  blind: 'blind: prediction only',
+  stale: 'stale: no new readings',
+} as const;

@@ -1,0 +1,116 @@
+import type {
+  DispatchAnswer,
+  Estimate,
+  Quality,
+  SensorReading,
+  StoreEstimate,
+  TubeProfile,
+} from '../../../core/estimate.js';
+import type { WatchEvent } from '../../../core/watch/event.js';
+
+/** What the server sends, as far as the page reads it; a test holds it against the server's types. */
+
+export interface StoreDefinition {
+  id: string;
+  kind: 'hot' | 'cold';
+  charge_inlet_at: 'top' | 'bottom';
+  length_m: number;
+  diameter_m: number;
+  reference_hot_degC: number;
+  reference_cold_degC: number;
+  outlet_limit_degC: number | null;
+  strings: {
+    id: string;
+    radius_m: number;
+    area_share: number;
+    thermocouples: { id: string; position_m: number }[];
+  }[];
+}
+
+export interface UnitDefinition {
+  unit: string;
+  name: string;
+  rated_power_MW_el: number;
+  rated_hours: number;
+  hours_at_MW_el: number[];
+  stores: StoreDefinition[];
+}
+
+export type StoreState = Omit<StoreEstimate, 'outlet_K'> & { outlet_degC: number | null };
+
+export type EstimateState = Omit<Estimate, 'stores' | 'dispatch'> & {
+  stores: Record<string, StoreState>;
+};
+
+export interface Dispatch {
+  time: string;
+  age_s: number | null;
+  answers: DispatchAnswer[];
+}
+
+export type Reading = Omit<SensorReading, 'value_K'> & { value_degC: number | null };
+export type Tube = Pick<TubeProfile, 'id' | 'sigma_K'> & { temperature_degC: number[] };
+
+export interface StoreProfile {
+  x_m: number[];
+  mean_degC: number[];
+  tubes: Tube[];
+  readings: Reading[];
+}
+
+export interface Profile {
+  time: string;
+  unit: string;
+  stores: Record<string, StoreProfile>;
+}
+
+export interface UnitState {
+  unit: string;
+  estimate: EstimateState | null;
+  dispatch: Dispatch | null;
+  age_s: number | null;
+  stale: boolean;
+  flow_kg_s: number | null;
+  power_MW_el: number | null;
+}
+
+export type StreamState = UnitState & { profile: Profile | null };
+
+export interface UnitSummary {
+  unit: string;
+  name: string;
+  age_s: number | null;
+  stale: boolean;
+}
+
+export interface UnitList {
+  site: string;
+  version: string;
+  units: UnitSummary[];
+}
+
+export type Standing = Omit<WatchEvent, 'transition'> & {
+  state: 'unacknowledged' | 'acknowledged' | 'returned_unacknowledged';
+  acknowledged_by: string | null;
+};
+
+export interface History {
+  from: string;
+  to: string;
+  series: string[];
+  rows: Record<string, string | number | null>[];
+}
+
+export interface Hello {
+  site: string;
+  version: string;
+  units: string[];
+  heartbeat_ms: number;
+  resume: 'new' | 'resumed' | 'gap';
+}
+
+export interface Beat {
+  units: { unit: string; age_s: number | null; stale: boolean }[];
+}
+
+export type { DispatchAnswer, Quality };

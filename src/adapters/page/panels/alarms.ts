@@ -1,0 +1,144 @@
+import { AnswerError, type Api } from '../lib/api.js';
+import { byId, h, s, setAttributes, setText } from '../lib/dom.js';
+import { dateClock } from '../lib/format.js';
+import type { PageModel } from '../lib/model.js';
+import type { Standing } from '../lib/wire.js';
+
+const NAME_KEY = 'rockhour.who';
+const STATE_ORDER = { unacknowledged: 0, returned_unacknowledged: 1, acknowledged: 2 } as const;
+const PRIORITY_ORDER = { high: 0, medium: 1, low: 2 } as const;
+const STATE_WORDS = {
+  unacknowledged: 'not acknowledged',
+  returned_unacknowledged: 'returned to normal, not acknowledged',
+  acknowledged: 'acknowledged',
+} as const;
+
+/** What asks for an answer first: open before acknowledged, alarms before alerts, by priority. */
+export function inOrder(standing: readonly Standing[]): Standing[] {
+  return [...standing].sort(
+    (a, b) =>
+      STATE_ORDER[a.state] - STATE_ORDER[b.state] ||
+      (a.class === b.class ? 0 : a.class === 'alarm' ? -1 : 1) ||
+      PRIORITY_ORDER[a.priority] - PRIORITY_ORDER[b.priority] ||
+      b.time.localeCompare(a.time),
+  );
+}
+
+function counted(count: number, name: string): string {
+  return `${count} ${name}${count === 1 ? '' : 's'}`;
+}
+
+/** Alarms are pointed, alerts are square; filled until acknowledged. */
+function sign(event: Standing): SVGElement {
+  const shape = event.class === 'alarm' ? 'M11,2 L20,18 H2 Z' : 'M3,3 H19 V17 H3 Z';
+  return s(
+    'svg',
+    { class: 'event-sign', width: 22, height: 20, 'aria-hidden': 'true' },
+    s('path', { d: shape }),
+    s('text', { x: 11, y: 15.5, 'text-anchor': 'middle' }, event.class === 'alarm' ? '!' : 'i'),
+  );
+}
+
+function item(event: Standing, unitName: string, acknowledge: () => void): HTMLElement {
+  const open = event.state !== 'acknowledged';
+  const button = h('button', { type: 'button' }, 'Acknowledge');
+  button.addEventListener('click', acknowledge);
+  const state = event.acknowledged_by
+    ? `${STATE_WORDS[event.state]} by ${event.acknowledged_by}`
+    : STATE_WORDS[event.state];
+  return h(
+    'li',
+    {
+      'data-id': event.id,
+      'data-state': event.state,
+      'data-class': event.class,
+      'data-priority': event.priority,
+    },
+    sign(event),
+    h(
+      'div',
+      {},
+      h(
+        'p',
+        { class: 'head' },
+        h('strong', {}, `${event.class}, ${event.priority}`),
+        ` · ${unitName} · ${event.subject}`,
+      ),
+      h('p', {}, event.message),
+      h('p', { class: 'when' }, `${dateClock(event.time)} · ${state}`),
+      open && button,
+    ),
+  );
+}
+
+/** What stands, of all units: an alarm of a unit that is not on the screen must not be missed. */
+export function alarmsPanel(model: PageModel, api: Api, reload: () => Promise<void>): () => void {
+  const who = h('input', { id: 'who', autocomplete: 'name', maxlength: 64, size: 14 });
+  try {
+    who.value = localStorage.getItem(NAME_KEY) ?? '';
+  } catch {
+    // Storage may be forbidden; the name is then typed anew at each visit.
+  }
+  const summary = h('p', { class: 'when', role: 'status', 'data-field': 'alarm-count' });
+  const fault = h('p', { class: 'fault', role: 'alert' });
+  const list = h('ul', { class: 'events' });
+  const head = byId('open-count');
+  byId('alarms').append(
+    summary,
+    list,
+    fault,
+    h('p', { class: 'who' }, h('label', { for: 'who' }, 'Acknowledge as '), who),
+  );
+
+  async function acknowledge(event: Standing): Promise<void> {
+    const name = who.value.trim();
+    if (name === '') {
+      setText(fault, 'Say first who acknowledges: a name is recorded with it.');
+      who.focus();
+      return;
+    }
+    try {
+      localStorage.setItem(NAME_KEY, name);
+    } catch {
+      // As above.
+    }
+    try {
+      await api.acknowledge(event.id, name);
+      setText(fault, '');
+    } catch (error) {
+      setText(fault, `Not acknowledged. ${error instanceof AnswerError ? error.message : error}`);
+    }
+    await reload();
+  }
+
+  let shown = '';
+  return () => {
+    const events = inOrder(model.standing);
+    const key = JSON.stringify(events);
+    if (key === shown) return;
+    shown = key;
+    const nameOf = (unit: string) => model.units.find((one) => one.unit === unit)?.name ?? unit;
+    const focused = document.activeElement?.closest<HTMLElement>('li[data-id]')?.dataset.id;
+    list.replaceChildren(
+      ...events.map((event) => item(event, nameOf(event.unit), () => void acknowledge(event))),
+    );
+    // The list was made anew: a keyboard user stays where he was.
+    const same = [...list.children].find((one) => (one as HTMLElement).dataset.id === focused);
+    same?.querySelector('button')?.focus();
+    const open = events.filter((event) => event.state !== 'acknowledged');
+    const alarms = open.filter((event) => event.class === 'alarm').length;
+    const rest = open.length - alarms;
+    const counts = [
+      alarms > 0 && counted(alarms, 'alarm'),
+      rest > 0 && counted(rest, 'alert'),
+    ].filter((words) => words !== false);
+    setAttributes(head, { hidden: open.length === 0, 'data-alarms': alarms > 0 });
+    setText(head, `${alarms > 0 ? '▲' : '■'} ${counts.join(', ')} to acknowledge`);
+    setText(
+      summary,
+      events.length === 0
+        ? 'Nothing stands.'
+        : `${events.length} standing, ${open.length} to acknowledge`,
+    );
+  };
+}

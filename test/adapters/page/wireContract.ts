@@ -1,0 +1,40 @@
+import type { z } from 'zod';
+import type {
+  eventsSchema,
+  StreamStateView,
+  standingEventSchema,
+  UnitNowView,
+  UnitProfileView,
+  unitHistorySchema,
+  unitHoursSchema,
+  unitListSchema,
+} from '../../../src/adapters/http/schema/answers.js';
+import type {
+  Dispatch,
+  History,
+  Profile,
+  Standing,
+  StreamState,
+  UnitDefinition,
+  UnitList,
+} from '../../../src/adapters/page/lib/wire.js';
+
+/**
+ * What the server sends is what the page reads. The page may not import from the HTTP adapter, so
+ * it has types of its own; the compiler holds them against each other here.
+ */
+type Sends<Sent extends Read, Read> = [Sent, Read];
+
+export type Contract = [
+  Sends<StreamStateView, StreamState>,
+  Sends<UnitNowView['definition'], UnitDefinition>,
+  Sends<UnitProfileView, Profile>,
+  Sends<z.output<typeof unitHoursSchema>, Dispatch>,
+  Sends<z.output<typeof unitListSchema>, UnitList>,
+  Sends<z.output<typeof unitHistorySchema>, History>,
+  Sends<z.output<typeof standingEventSchema>, Standing>,
+  Sends<
+    z.output<typeof eventsSchema>['events'][number],
+    Omit<Standing, 'state' | 'acknowledged_by'>
+  >,
+];
