@@ -69,6 +69,7 @@ export class Intake {
   private unflushed = 0;
   private timer: NodeJS.Timeout | null = null;
   private failing = false;
+  private stopped = false;
 
   constructor(private readonly options: IntakeOptions) {
     const channels = new Map(
@@ -105,7 +106,13 @@ export class Intake {
     for (const reading of readings) this.recent.seen(reading);
   }
 
+  start(): void {
+    this.stopped = false;
+  }
+
   receive(delivery: Delivery): void {
+    // Not acknowledged, the broker has it still.
+    if (this.stopped) return;
     const { count, notice } = this.options;
     count('messages', 1);
     this.unflushed++;
@@ -143,6 +150,7 @@ export class Intake {
 
   /** Commits what waits, as far as possible, and forgets the rest: the broker still has it. */
   stop(): void {
+    this.stopped = true;
     this.flush();
     if (this.timer) clearTimeout(this.timer);
     this.timer = null;

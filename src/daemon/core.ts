@@ -1,0 +1,27 @@
+import type { UnitDefinition } from '../core/definitions.js';
+import type { DispatchAnswer } from '../core/estimate.js';
+import type { Scan } from '../core/scan/scan.js';
+import {
+  advance,
+  hoursAt,
+  hoursDue,
+  restoreUnit,
+  saveUnit,
+  startUnit,
+  type UnitAsk,
+  type UnitSnapshot,
+  type UnitState,
+  type UnitStep,
+} from '../core/unit.js';
+
+/** What the daemon needs of the core; a test may put something small in its place. */
+export interface Core {
+  startUnit(unit: UnitDefinition): UnitState;
+  advance(unit: UnitDefinition, state: UnitState, scan: Scan, ask: UnitAsk): UnitStep;
+  saveUnit(state: UnitState): UnitSnapshot;
+  restoreUnit(unit: UnitDefinition, snapshot: UnitSnapshot): UnitState;
+  hoursAt(unit: UnitDefinition, state: UnitState, powers_W: readonly number[]): DispatchAnswer[];
+  hoursDue(unit: UnitDefinition, last_ms: number | null, now_ms: number): boolean;
+}
+
+export const realCore: Core = { startUnit, advance, saveUnit, restoreUnit, hoursAt, hoursDue };

@@ -1,0 +1,52 @@
+import { FORWARDER_COUNTS } from '../adapters/history/influxForwarder.js';
+import { INTAKE_COUNTS } from '../adapters/mqtt/intake.js';
+import { READING_FATES } from '../core/scan/assemble.js';
+
+/** Counters of the daemon itself; those of its parts are documented there. */
+const OWN_COUNTS = [
+  /** Scans that the estimator took in, by why they were closed, and those without any reading. */
+  'scans',
+  'scans_complete',
+  'scans_deadline',
+  'scans_empty',
+  /** Scans left out because a gap was too long to tick through. */
+  'scans_skipped',
+  /** Scans on which the estimator failed; it went on from its last sound state. */
+  'scan_failures',
+  'history_failures',
+  'events',
+  /** Journal entries of a unit or channel that is no longer configured. */
+  'unconfigured',
+  'questions',
+  'estimates_thinned',
+  'estimates_not_forwarded',
+] as const;
+
+export type CounterName =
+  | (typeof OWN_COUNTS)[number]
+  | (typeof INTAKE_COUNTS)[number]
+  | (typeof READING_FATES)[number]
+  | (typeof FORWARDER_COUNTS)[number];
+
+/** All counters by name, from 0 at the start of the process. */
+export class Counters {
+  private readonly counts = new Map<string, number>();
+
+  constructor() {
+    for (const list of [INTAKE_COUNTS, READING_FATES, OWN_COUNTS, FORWARDER_COUNTS]) {
+      for (const name of list) this.counts.set(name, 0);
+    }
+  }
+
+  add(name: CounterName, by = 1): void {
+    this.counts.set(name, (this.counts.get(name) ?? 0) + by);
+  }
+
+  get(name: CounterName): number {
+    return this.counts.get(name) ?? 0;
+  }
+
+  all(): Record<string, number> {
+    return Object.fromEntries(this.counts);
+  }
+}

@@ -1,0 +1,62 @@
+import type { InfluxForwarder } from '../adapters/history/influxForwarder.js';
+import type { Outbox } from '../adapters/history/outbox.js';
+import type { HealthPart } from '../adapters/http/service.js';
+import type { DaemonClock } from './clock.js';
+import type { UnitRunner } from './unitRunner.js';
+
+export function brokerHealth(
+  url: string,
+  isConnected: boolean,
+  refused: string | null,
+): HealthPart {
+  const detail = isConnected ? `connected to ${url}` : `no connection to ${url}; keeps trying`;
+  return {
+    name: 'mqtt',
+    ok: isConnected && refused === null,
+    detail: refused === null ? detail : `${detail}; a subscription was refused: ${refused}`,
+  };
+}
+
+/** The local store: journal and history. */
+export function storeHealth(
+  folder: string,
+  isStuck: boolean,
+  backlog: number,
+  failures: number,
+): HealthPart {
+  if (isStuck) {
+    const detail = `the journal in ${folder} cannot be written; messages wait at the broker`;
+    return { name: 'store', ok: false, detail };
+  }
+  const detail = `${backlog} readings to work off in ${folder}`;
+  if (failures === 0) return { name: 'store', ok: true, detail };
+  return {
+    name: 'store',
+    ok: false,
+    detail: `${detail}; ${failures} writes to the history failed`,
+  };
+}
+
+export function databaseHealth(forwarder: InfluxForwarder, outbox: Outbox): HealthPart {
+  const { backlog } = outbox;
+  const { trouble } = forwarder;
+  if (trouble !== null) {
+    const detail = `${trouble}; ${backlog} entries wait in the local store, none is lost`;
+    return { name: 'influxdb', ok: false, detail };
+  }
+  const detail = forwarder.proven ? `${backlog} entries to forward` : 'not reached yet';
+  return { name: 'influxdb', ok: true, detail };
+}
+
+export function unitHealth(
+  runner: UnitRunner,
+  failure: string | undefined,
+  clock: DaemonClock,
+): HealthPart {
+  const name = `unit ${runner.unit.id}`;
+  if (failure !== undefined) return { name, ok: false, detail: `the last scan failed: ${failure}` };
+  if (runner.newest_ms === null) return { name, ok: false, detail: 'no reading yet' };
+  const age_s = Math.max(0, (clock.now() - runner.newest_ms) / 1000);
+  const ok = age_s <= runner.unit.watch.data_age_s.limit;
+  return { name, ok, detail: `newest reading ${Math.round(age_s)} s old` };
+}

@@ -1,0 +1,302 @@
+import type { Checkpoint } from '../adapters/history/checkpoints.js';
+import type { History } from '../adapters/history/history.js';
+import type { Journal, JournalEntry } from '../adapters/history/journal.js';
+import type { WatchEvent } from '../core/watch/event.js';
+import { reasonOf } from '../errors.js';
+import type { Log } from '../log.js';
+import type { DaemonClock, SteadyClock } from './clock.js';
+import type { Counters } from './counters.js';
+import type { Notices } from './notices.js';
+import type { RunnerStep, UnitRunner } from './unitRunner.js';
+
+/** Work in one go, after which messages and questions have their turn [ms]. */
+const SLICE_MS = 25;
+/** Journal entries read at a time. */
+const PAGE = 512;
+/** Of a unit without a usable checkpoint, this much of the journal is run again [ms of arrival]. */
+const AFRESH_MS = 86_400_000;
+/** After a failure to read the journal [ms]. */
+const RETRY_MS = 1000;
+
+export interface PipelineOptions {
+  readonly journal: Journal;
+  readonly history: History;
+  readonly runners: readonly UnitRunner[];
+  readonly clock: DaemonClock;
+  readonly steady: SteadyClock;
+  readonly counters: Counters;
+  readonly notices: Notices;
+  readonly log: Log;
+  readonly checkpoint_every_ms: number;
+  /** A step of a unit whose estimate is new. */
+  stepped(runner: UnitRunner, step: RunnerStep): void;
+  /** An event that is new. */
+  event(event: WatchEvent): void;
+}
+
+/**
+ * From journal to history: reads what was committed, in order, runs it through the units and
+ * enters what comes out. It works in slices; how far it is behind the journal is its backlog.
+ */
+export class Pipeline {
+  private seq = 0;
+  private page: readonly JournalEntry[] = [];
+  private onPage = 0;
+  /** Units that may have closed scans to be worked off before the next entry. */
+  private busy: UnitRunner[] = [];
+  private scheduled: NodeJS.Immediate | null = null;
+  private retry: NodeJS.Timeout | null = null;
+  private running = false;
+  private liveFrom = Number.POSITIVE_INFINITY;
+  private idle: (() => void)[] = [];
+  private readonly nextCheckpoint = new Map<string, number>();
+  private readonly failing = new Map<string, string>();
+
+  constructor(private readonly options: PipelineOptions) {}
+
+  /** Restores every unit and replays the journal since. */
+  start(): void {
+    if (this.running) return;
+    this.running = true;
+    const { runners, journal } = this.options;
+    this.liveFrom = journal.lastSeq + 1;
+    for (const runner of runners) this.restore(runner);
+    this.seq = Math.min(journal.lastSeq, ...runners.map((runner) => runner.seq));
+    // A stop may have come amid the scans of a long gap.
+    this.busy = [...runners];
+    this.kick();
+  }
+
+  /** Ends after the scan at hand and saves every unit. */
+  stop(): void {
+    if (!this.running) return;
+    this.running = false;
+    if (this.scheduled) clearImmediate(this.scheduled);
+    this.scheduled = null;
+    if (this.retry) clearTimeout(this.retry);
+    this.retry = null;
+    for (const runner of this.options.runners) this.save(runner);
+    for (const resolve of this.idle.splice(0)) resolve();
+  }
+
+  /** To be called when the journal has grown. */
+  kick(): void {
+    if (!this.running || this.scheduled) return;
+    this.scheduled = setImmediate(() => this.slice());
+  }
+
+  /** Closes what is past its deadline, unless there are readings still to be considered. */
+  closeDue(): void {
+    if (!this.running || this.backlog > 0) return;
+    const { journal, runners, steady, clock } = this.options;
+    const steady_ms = steady.now();
+    for (const runner of runners) {
+      const index = runner.due(steady_ms);
+      if (index === null) continue;
+      try {
+        journal.appendClose(runner.unit.id, index, Math.floor(clock.now()));
+      } catch (thrown) {
+        this.options.counters.add('journal_failures');
+        this.options.notices.warn('journal_failures', reasonOf(thrown));
+        return;
+      }
+    }
+    this.kick();
+  }
+
+  /** Entries that are in the journal but not in the estimates. */
+  get backlog(): number {
+    return this.options.journal.lastSeq - this.seq + this.busy.length;
+  }
+
+  /** Why a unit's last scan could not be taken in, by unit. */
+  get failures(): ReadonlyMap<string, string> {
+    return this.failing;
+  }
+
+  /** Resolves when everything in the journal is in the estimates. */
+  caughtUp(): Promise<void> {
+    if (this.backlog === 0) return Promise.resolve();
+    return new Promise((resolve) => this.idle.push(resolve));
+  }
+
+  private restore(runner: UnitRunner): void {
+    const { history, log, journal, clock } = this.options;
+    const { id } = runner.unit;
+    for (const checkpoint of history.checkpoints.list(runner.unit)) {
+      if (checkpoint.journal_seq > journal.lastSeq) continue;
+      try {
+        runner.restore(checkpoint);
+        Object.assign(runner.view, {
+          estimate: history.estimates.latest(id),
+          profile: history.estimates.latestProfile(id),
+          dispatch: history.estimates.latestDispatch(id),
+        });
+        return;
+      } catch (thrown) {
+        log.warn({ unit: id }, `a checkpoint cannot be used: ${reasonOf(thrown)}`);
+      }
+    }
+    const from = journal.lastSeq === 0 ? 0 : journal.seqBefore(clock.now() - AFRESH_MS);
+    runner.startAt(from);
+    if (journal.lastSeq === 0 || !history.checkpoints.hasAny(id)) return;
+    log.warn({ unit: id }, 'no checkpoint fits: starts afresh from the last day of the journal');
+    this.returnOrphans(id);
+  }
+
+  /** What stood under the old state would stand for ever: the new one never raised it. */
+  private returnOrphans(unit: string): void {
+    const { history, clock } = this.options;
+    for (const { state, acknowledged_by: _, ...event } of history.events.standing(unit)) {
+      if (state === 'returned_unacknowledged' || event.kind === 'database_unreachable') continue;
+      const time = new Date(clock.now()).toISOString();
+      const message = 'The estimator was started afresh; raised again where it still holds.';
+      history.events.add({ ...event, transition: 'returned', time, message });
+    }
+  }
+
+  private slice(): void {
+    this.scheduled = null;
+    const end = performance.now() + SLICE_MS;
+    while (this.running && performance.now() < end) {
+      if (this.busy.length > 0) this.stepBusy();
+      else if (!this.takeNext()) {
+        this.rest();
+        return;
+      }
+    }
+    this.kick();
+  }
+
+  /** Nothing to do now, or, with a backlog, a journal that cannot be read. */
+  private rest(): void {
+    if (this.backlog > 0) this.retry ??= setTimeout(() => this.tryAgain(), RETRY_MS);
+    else for (const resolve of this.idle.splice(0)) resolve();
+  }
+
+  private tryAgain(): void {
+    this.retry = null;
+    this.kick();
+  }
+
+  /** Takes the next entry in; false where there is none. */
+  private takeNext(): boolean {
+    if (this.onPage >= this.page.length) {
+      this.page = this.readPage();
+      this.onPage = 0;
+    }
+    const entry = this.page[this.onPage++];
+    if (!entry) return false;
+    const { runners, counters, notices, steady } = this.options;
+    this.seq = entry.seq;
+    const runner = runners.find(({ unit }) => unit.id === entry.unit);
+    const isLive = entry.seq >= this.liveFrom;
+    const fate = runner ? runner.take(entry, steady.now()) : 'unconfigured';
+    if (fate !== null && isLive) {
+      counters.add(fate);
+      if (fate === 'late' || fate === 'future' || fate === 'unconfigured') {
+        notices.warn(fate, describe(entry, fate));
+      }
+    }
+    if (runner) this.busy.push(runner);
+    return true;
+  }
+
+  private readPage(): JournalEntry[] {
+    try {
+      return this.options.journal.read(this.seq, PAGE);
+    } catch (thrown) {
+      this.options.counters.add('journal_failures');
+      this.options.notices.warn('journal_failures', reasonOf(thrown));
+      return [];
+    }
+  }
+
+  /** One scan of a unit that has closed ones, or the end of them. */
+  private stepBusy(): void {
+    const runner = this.busy.at(-1)!;
+    const { counters } = this.options;
+    const skipped = runner.skippedScans;
+    try {
+      const step = runner.step();
+      if (!step) {
+        this.busy.pop();
+        return;
+      }
+      counters.add('scans');
+      counters.add(step.closed.cause === 'complete' ? 'scans_complete' : 'scans_deadline');
+      if (step.closed.reported === 0) counters.add('scans_empty');
+      counters.add('scans_skipped', runner.skippedScans - skipped);
+      this.failing.delete(runner.unit.id);
+      this.enter(runner, step);
+    } catch (thrown) {
+      this.failed(runner, thrown);
+    }
+  }
+
+  private enter(runner: UnitRunner, step: RunnerStep): void {
+    const { history, counters, notices, stepped, event } = this.options;
+    const { estimate, profile, events } = step.step;
+    try {
+      const news = history.write(() => {
+        const isNew = history.estimates.add(runner.unit, estimate, step.measured);
+        if (profile) history.estimates.addProfile(profile);
+        return { isNew, events: events.filter((one) => history.events.add(one)) };
+      });
+      if (news.isNew) stepped(runner, step);
+      for (const one of news.events) event(one);
+    } catch (thrown) {
+      counters.add('history_failures');
+      notices.warn('history_failures', reasonOf(thrown));
+      stepped(runner, step);
+      for (const one of events) event(one);
+    }
+    this.checkpointIfDue(runner, Date.parse(estimate.time));
+  }
+
+  private checkpointIfDue(runner: UnitRunner, time_ms: number): void {
+    const due = this.nextCheckpoint.get(runner.unit.id);
+    if (due !== undefined && time_ms < due) return;
+    this.nextCheckpoint.set(runner.unit.id, time_ms + this.options.checkpoint_every_ms);
+    // The first of this process would only repeat the one that it was restored from.
+    if (due !== undefined) this.save(runner);
+  }
+
+  private save(runner: UnitRunner): void {
+    const { history, counters, notices } = this.options;
+    const checkpoint = runner.checkpoint();
+    if (!checkpoint) return;
+    try {
+      history.write(() => {
+        history.checkpoints.add(runner.unit, checkpoint);
+        if (runner.view.profile) history.estimates.addProfile(runner.view.profile, true);
+      });
+    } catch (thrown) {
+      counters.add('history_failures');
+      notices.warn('history_failures', reasonOf(thrown));
+    }
+  }
+
+  private failed(runner: UnitRunner, thrown: unknown): void {
+    const { counters, notices, history } = this.options;
+    counters.add('scan_failures');
+    this.failing.set(runner.unit.id, reasonOf(thrown));
+    notices.warn(
+      `scan_failures ${runner.unit.id}`,
+      `unit ${runner.unit.id}: a scan could not be taken in: ${reasonOf(thrown)}`,
+    );
+    const sound: Checkpoint | undefined = history.checkpoints.list(runner.unit)[0];
+    runner.recover(sound);
+  }
+}
+
+function describe(entry: JournalEntry, fate: string): string {
+  if (entry.kind === 'close') return `close mark of unit ${entry.unit}`;
+  const time = new Date(entry.time_ms).toISOString();
+  const behind_s = (entry.arrival_ms - entry.time_ms) / 1000;
+  const why = {
+    late: `came ${behind_s.toFixed(1)} s after its source time, when its scan was closed`,
+    future: `is stamped ${(-behind_s).toFixed(1)} s ahead of this machine's clock`,
+  }[fate];
+  return `${entry.unit}, ${entry.channel}: the reading of ${time} ${why ?? 'has no such channel now'}`;
+}

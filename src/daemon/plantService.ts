@@ -1,0 +1,120 @@
+import type { History } from '../adapters/history/history.js';
+import type {
+  HealthPart,
+  HistoryPoint,
+  PlantService,
+  ServiceMessage,
+  StandingEvent,
+  UnitNow,
+} from '../adapters/http/service.js';
+import type { DispatchAnswer } from '../core/estimate.js';
+import type { WatchEvent } from '../core/watch/event.js';
+import type { DaemonClock } from './clock.js';
+import type { Counters } from './counters.js';
+import type { Questions } from './questions.js';
+import type { UnitRunner } from './unitRunner.js';
+
+export interface PlantServiceParts {
+  readonly siteName: string;
+  readonly version: string;
+  readonly runners: ReadonlyMap<string, UnitRunner>;
+  readonly history: History;
+  readonly questions: Questions;
+  readonly counters: Counters;
+  readonly clock: DaemonClock;
+  health(): HealthPart[];
+  /** What stands has changed by an acknowledgement. */
+  acknowledged(unit: string): void;
+}
+
+/** What the daemon offers to pages and programs; it reads, but for acknowledgements. */
+export class DaemonService implements PlantService {
+  private readonly listeners = new Set<(message: ServiceMessage) => void>();
+
+  constructor(private readonly parts: PlantServiceParts) {}
+
+  get siteName(): string {
+    return this.parts.siteName;
+  }
+
+  get version(): string {
+    return this.parts.version;
+  }
+
+  unitIds(): string[] {
+    return [...this.parts.runners.keys()];
+  }
+
+  now(id: string): UnitNow | undefined {
+    const runner = this.parts.runners.get(id);
+    if (!runner) return undefined;
+    const { unit, view, newest_ms } = runner;
+    const age_s =
+      newest_ms === null ? null : Math.max(0, (this.parts.clock.now() - newest_ms) / 1000);
+    const isOld = age_s !== null && age_s > unit.watch.data_age_s.limit;
+    const { estimate, profile, dispatch, measured } = view;
+    const stale = isOld || estimate?.quality === 'stale';
+    return { unit, estimate, profile, dispatch, age_s, stale, ...measured };
+  }
+
+  async hours(
+    id: string,
+    powers_MW: readonly number[],
+  ): Promise<{ time: string; answers: DispatchAnswer[] }> {
+    const runner = this.runner(id);
+    const time = runner.view.estimate?.time;
+    if (time === undefined) throw new RangeError(`unit ${id} must have an estimate, got none yet`);
+    this.parts.counters.add('questions');
+    const snapshot = runner.snapshot();
+    const powers_W = powers_MW.map((power) => power * 1e6);
+    return { time, answers: await this.parts.questions.hours(runner.unit, snapshot, powers_W) };
+  }
+
+  history(unit: string, from_ms: number, to_ms: number, points: number): HistoryPoint[] {
+    this.runner(unit);
+    return this.parts.history.estimates.series(unit, from_ms, to_ms, points);
+  }
+
+  historySeries(unit: string): string[] {
+    return this.parts.history.estimates.names(this.runner(unit).unit);
+  }
+
+  standing(unit?: string): StandingEvent[] {
+    return this.parts.history.events.standing(unit);
+  }
+
+  events(unit: string | undefined, from_ms: number, to_ms: number, most: number): WatchEvent[] {
+    return this.parts.history.events.between(unit, from_ms, to_ms, most);
+  }
+
+  acknowledge(id: string, who: string): boolean {
+    const { history, clock } = this.parts;
+    const stands = history.events.standing().find((event) => event.id === id);
+    if (!stands || !history.events.acknowledge(id, who, Math.floor(clock.now()))) return false;
+    this.parts.acknowledged(stands.unit);
+    return true;
+  }
+
+  health(): HealthPart[] {
+    return this.parts.health();
+  }
+
+  counters(): Record<string, number> {
+    return this.parts.counters.all();
+  }
+
+  subscribe(listener: (message: ServiceMessage) => void): () => void {
+    this.listeners.add(listener);
+    return () => this.listeners.delete(listener);
+  }
+
+  tell(message: ServiceMessage): void {
+    for (const listener of this.listeners) listener(message);
+  }
+
+  private runner(id: string): UnitRunner {
+    const runner = this.parts.runners.get(id);
+    if (!runner) throw new RangeError(`unit must be one of ${this.unitIds()}, got ${id}`);
+    return runner;
+  }
+}

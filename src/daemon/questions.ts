@@ -1,0 +1,94 @@
+import { Worker } from 'node:worker_threads';
+import type { UnitDefinition } from '../core/definitions.js';
+import type { DispatchAnswer } from '../core/estimate.js';
+import type { UnitSnapshot } from '../core/unit.js';
+import { RockhourError } from '../errors.js';
+import type { HoursQuestion, HoursReply } from '../worker.js';
+import type { Core } from './core.js';
+
+/** Questions that wait at most; more are refused at once rather than answered too late. */
+const MOST_WAITING = 64;
+
+interface Waiting {
+  readonly resolve: (answers: DispatchAnswer[]) => void;
+  readonly reject: (reason: unknown) => void;
+}
+
+/**
+ * Questions to a worker thread, which is started with the first of them and again should it end.
+ * Without a configuration file (a site made in code) they are answered in this thread.
+ */
+export class Questions {
+  private worker: Worker | null = null;
+  private readonly waiting = new Map<number, Waiting>();
+  private next = 1;
+
+  constructor(
+    private readonly core: Core,
+    private readonly configPath: string | null,
+  ) {}
+
+  async hours(
+    unit: UnitDefinition,
+    snapshot: UnitSnapshot,
+    powers_W: readonly number[],
+  ): Promise<DispatchAnswer[]> {
+    if (this.configPath === null) {
+      await new Promise((resolve) => setImmediate(resolve));
+      return this.core.hoursAt(unit, this.core.restoreUnit(unit, snapshot), powers_W);
+    }
+    if (this.waiting.size >= MOST_WAITING) {
+      throw new RockhourError('INTERNAL', `${MOST_WAITING} questions wait for an answer already`, {
+        advice: 'Ask again in a moment.',
+      });
+    }
+    const id = this.next++;
+    const worker = this.start(this.configPath);
+    return new Promise((resolve, reject) => {
+      this.waiting.set(id, { resolve, reject });
+      worker.postMessage({ id, unit: unit.id, snapshot, powers_W } satisfies HoursQuestion);
+    });
+  }
+
+  async stop(): Promise<void> {
+    const { worker } = this;
+    this.worker = null;
+    await worker?.terminate();
+    this.failAll(new Error('rockhour is stopping'));
+  }
+
+  private start(configPath: string): Worker {
+    if (this.worker) return this.worker;
+    // From the sources, as in development, the worker needs the loader for TypeScript as well.
+    const fromSources = import.meta.url.endsWith('.ts');
+    const file = new URL(fromSources ? '../worker.ts' : '../worker.js', import.meta.url);
+    const worker = new Worker(file, {
+      workerData: { configPath },
+      ...(fromSources ? { execArgv: ['--import', 'tsx'] } : {}),
+    });
+    worker.on('message', (reply: HoursReply) => this.settle(reply));
+    worker.on('error', (error) => this.lost(worker, error));
+    worker.on('exit', (code) => this.lost(worker, new Error(`the worker ended with code ${code}`)));
+    worker.unref();
+    this.worker = worker;
+    return worker;
+  }
+
+  private settle({ id, answers, failure }: HoursReply): void {
+    const waiting = this.waiting.get(id);
+    this.waiting.delete(id);
+    if (answers) waiting?.resolve(answers);
+    else waiting?.reject(new Error(failure));
+  }
+
+  private lost(worker: Worker, reason: Error): void {
+    if (this.worker !== worker) return;
+    this.worker = null;
+    this.failAll(reason);
+  }
+
+  private failAll(reason: Error): void {
+    for (const { reject } of this.waiting.values()) reject(reason);
+    this.waiting.clear();
+  }
+}

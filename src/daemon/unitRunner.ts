@@ -1,0 +1,179 @@
+import type { Checkpoint } from '../adapters/history/checkpoints.js';
+import type { JournalEntry } from '../adapters/history/journal.js';
+import type { Measured } from '../adapters/history/series.js';
+import type { UnitDefinition } from '../core/definitions.js';
+import type { DispatchAnswer, Estimate, ProfileView } from '../core/estimate.js';
+import {
+  Assembler,
+  type AssemblerOptions,
+  type AssemblerSnapshot,
+  type ClosedScan,
+  type ReadingFate,
+} from '../core/scan/assemble.js';
+import { voltageFinish } from '../core/scan/convert.js';
+import { PlantClock } from '../core/scan/plantClock.js';
+import type { Scan } from '../core/scan/scan.js';
+import type { UnitSnapshot, UnitState, UnitStep } from '../core/unit.js';
+import type { Core } from './core.js';
+
+/** What a checkpoint holds: estimator and open scans, as of one journal entry. */
+interface RunnerImage {
+  readonly unit: UnitSnapshot;
+  readonly assembler: AssemblerSnapshot;
+}
+
+export interface RunnerStep {
+  readonly closed: ClosedScan;
+  readonly step: UnitStep;
+  readonly measured: Measured;
+}
+
+/** Newest of everything that a unit tells. */
+export interface RunnerView {
+  estimate: Estimate | null;
+  profile: ProfileView | null;
+  dispatch: { time: string; answers: readonly DispatchAnswer[] } | null;
+  measured: Measured;
+}
+
+/**
+ * One unit between journal and estimate: entries in, scans through the core, steps out. What comes
+ * out is a function of the entries alone, so that live, after a restart and in a replay of the
+ * journal it is the same.
+ */
+export class UnitRunner {
+  readonly plantClock = new PlantClock();
+  readonly view: RunnerView = {
+    estimate: null,
+    profile: null,
+    dispatch: null,
+    measured: { flow_kg_s: null, power_MW_el: null },
+  };
+  private assembler: Assembler;
+  private state: UnitState;
+  private readonly channelIndex: ReadonlyMap<string, number>;
+  private readonly finish;
+  /** Entries up to this number are in the state. */
+  private taken_seq = 0;
+
+  constructor(
+    readonly unit: UnitDefinition,
+    private readonly core: Core,
+    private readonly options: AssemblerOptions,
+  ) {
+    this.channelIndex = new Map(unit.channels.map((channel, i) => [channel.id, i]));
+    this.finish = voltageFinish(unit);
+    this.assembler = new Assembler(unit, options, this.finish);
+    this.state = core.startUnit(unit);
+  }
+
+  /** Last journal entry that is in the state. */
+  get seq(): number {
+    return this.taken_seq;
+  }
+
+  /** Newest source time believed [ms], null before the first. */
+  get newest_ms(): number | null {
+    return this.assembler.newest;
+  }
+
+  get skippedScans(): number {
+    return this.assembler.skippedScans;
+  }
+
+  /** Starts without a past, behind this journal entry. */
+  startAt(seq: number): void {
+    this.taken_seq = seq;
+  }
+
+  /** @throws RangeError where the checkpoint does not fit this unit or this build */
+  restore(checkpoint: Checkpoint): void {
+    const image = checkpoint.image as RunnerImage;
+    const assembler = new Assembler(this.unit, this.options, this.finish);
+    assembler.restore(image.assembler);
+    this.state = this.core.restoreUnit(this.unit, image.unit);
+    this.assembler = assembler;
+    this.taken_seq = checkpoint.journal_seq;
+  }
+
+  /** The whole state; null before the first scan. */
+  checkpoint(): Omit<Checkpoint, 'unit'> | null {
+    if (this.state.time_ms === null) return null;
+    const image: RunnerImage = {
+      unit: this.core.saveUnit(this.state),
+      assembler: this.assembler.save(),
+    };
+    return { time_ms: this.state.time_ms, journal_seq: this.taken_seq, image };
+  }
+
+  snapshot(): UnitSnapshot {
+    return this.core.saveUnit(this.state);
+  }
+
+  /**
+   * Takes an entry in, after which `step` is to be called until it has nothing more.
+   * @returns what became of a reading, null for a close mark, `unconfigured` for another's channel
+   */
+  take(entry: JournalEntry, steady_ms: number): ReadingFate | 'unconfigured' | null {
+    if (entry.seq <= this.taken_seq) return null;
+    this.taken_seq = entry.seq;
+    if (entry.kind === 'close') {
+      this.assembler.closeThrough(entry.scan_index);
+      return null;
+    }
+    const channel = this.channelIndex.get(entry.channel);
+    if (channel === undefined) return 'unconfigured';
+    const { time_ms, arrival_ms, value } = entry;
+    const fate = this.assembler.add({ channel, time_ms, arrival_ms, value });
+    if (fate !== 'future') this.plantClock.observe(time_ms, steady_ms);
+    return fate;
+  }
+
+  /** Index up to which scans are past their deadline, null where none is. */
+  due(steady_ms: number): number | null {
+    const plant_ms = this.plantClock.at(steady_ms);
+    return plant_ms === null ? null : this.assembler.due(plant_ms);
+  }
+
+  /** The next closed scan through the core; null where none is closed. Throws what the core throws. */
+  step(): RunnerStep | null {
+    const closed = this.assembler.take();
+    if (!closed) return null;
+    const { scan } = closed;
+    const isDue = this.core.hoursDue(this.unit, this.state.time_ms, scan.time_ms);
+    const ask = { hours_at_W: isDue ? this.unit.hours_at_W : [], profile: true };
+    const step = this.core.advance(this.unit, this.state, scan, ask);
+    const { estimate, profile } = step;
+    const measured = measuredIn(this.unit, scan, estimate);
+    Object.assign(this.view, { estimate, profile, measured });
+    if (estimate.dispatch) this.view.dispatch = { time: estimate.time, answers: estimate.dispatch };
+    return { closed, step, measured };
+  }
+
+  /** After a failure of the core: back to a sound state, or to none; time passes on from there. */
+  recover(checkpoint: Checkpoint | undefined): void {
+    const image = checkpoint?.image as RunnerImage | undefined;
+    this.state = image
+      ? this.core.restoreUnit(this.unit, image.unit)
+      : this.core.startUnit(this.unit);
+  }
+}
+
+/** Flow (positive while charging) and net power as measured in a scan. */
+function measuredIn(unit: UnitDefinition, scan: Scan, estimate: Estimate): Measured {
+  let flow = Number.NaN;
+  let power = Number.NaN;
+  unit.channels.forEach(({ role }, i) => {
+    const value = scan.values[i]!;
+    if (Number.isNaN(value)) return;
+    if (role.kind === 'power') power = value / 1e6;
+    if (role.kind !== 'flow') return;
+    if (role.sense === 'signed') flow = value;
+    else if (role.sense === 'unsigned') flow = estimate.mode === 'discharge' ? -value : value;
+    else flow = (Number.isNaN(flow) ? 0 : flow) + (role.sense === 'charge' ? value : -value);
+  });
+  return {
+    flow_kg_s: Number.isFinite(flow) ? flow : null,
+    power_MW_el: Number.isFinite(power) ? power : null,
+  };
+}
