@@ -26,7 +26,6 @@ function createProgram(): Command {
     .showSuggestionAfterError()
     .exitOverride();
   for (const register of [registerReplay, registerHours, registerCheck]) register(program);
-  for (const command of program.commands) command.exitOverride();
   return program;
 }
 
