@@ -23,7 +23,7 @@ export function frontSpeed(
  * Expected growth of a front's width squared [m2]: 2 D t with D = (G cf)^2/(hv C) + kax/C, written
  * with the travel s = v t and the gas lag G cf/hv, which is 2 (G cf/hv) s + 2 (kax/C) t. Constant
  * properties: what c_s(T) sharpens or spreads besides is not in it, and the front view allows for
- * as much again (Schumann 1929 at large NTU; Levenspiel 1999 for adding the variances).
+ * as much again (Schumann 1929 at large NTU; variances add).
  *
  * @param travel_m distance that the front went, either sense [m]
  * @param gasLag_m G cf/hv [m], 0 while standing

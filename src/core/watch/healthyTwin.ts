@@ -4,6 +4,8 @@ import type { StoreDefinition } from '../definitions.js';
 import { requireNotNegative, requirePositive } from '../misuse.js';
 import { type Fronts, findFronts } from '../track/fronts.js';
 
+export { type SpreadRatio, spreadRatio } from './spreadRatio.js';
+
 /** What never changes of a store's twin. */
 export interface TwinModel {
   readonly store: StoreDefinition;
@@ -45,11 +47,6 @@ export interface TwinInput {
   readonly fronts: readonly MeasuredFront[];
 }
 
-export interface SpreadRatio {
-  readonly ratio: number;
-  readonly sigma: number;
-}
-
 export interface MeasuredFront {
   readonly position_m: number | null;
   readonly width_m: number | null;
@@ -61,8 +58,6 @@ const UNIFORM_K = 5;
 const UNIFORM_SHARE = 0.02;
 /** Unknown travel beyond this share of the bed's length loses the history. */
 const LOST_SHARE = 0.05;
-/** Fronts of bed and twin further apart than this share of the length are not the same one. */
-const SAME_SHARE = 0.15;
 
 export function twinModel(store: StoreDefinition, tables: BedTables, cells: number): TwinModel {
   const { reference_hot_K: hot, reference_cold_K: cold } = store;
@@ -158,68 +153,13 @@ export function stepTwin(model: TwinModel, state: TwinState, input: TwinInput): 
   }
 }
 
-/**
- * Spread ratio: width of a measured front over the width that the healthy twin shows for the same
- * front (the nearest one), and its sigma from both widths. Of several fronts the one that is widest
- * beyond doubt (ratio less two sigmas).
- *
- * Where the two stand apart by d along the present flow, the twin's width is carried to the measured
- * position: what it has grown since its start is taken as proportional to the way (w^2 = w0^2 +
- * 2 (D/v) s), so w_at^2 = w^2 + (w^2 - w0^2) d/travelled. Only the first order is meant: beyond
- * half the way there is no ratio. The twin's own width is as uncertain as the one it started with;
- * tuned factors of the bed are taken as they stand, which the limit has to allow for.
- *
- * @param fronts published fronts of the store's mean profile
- * @param direction +1 charging, -1 discharging; while standing that of the last flow
- * @returns null where either has no width, they stand too far apart, or the twin is lost
- */
-export function spreadRatio(
-  model: TwinModel,
-  state: TwinState,
-  fronts: readonly MeasuredFront[],
-  direction: 1 | -1,
-): SpreadRatio | null {
-  if (state.enthalpy === null || state.lost) return null;
-  const twins = profileFronts(model, twinTemperatures(model, state.enthalpy)).fronts;
-  let worst: SpreadRatio | null = null;
-  for (const { position_m, width_m, width_sigma_m } of fronts) {
-    if (position_m === null || width_m === null || width_sigma_m === null) continue;
-    const twin = twins.reduce(
-      (best, next) =>
-        Math.abs(next.position_m - position_m) < Math.abs(best.position_m - position_m)
-          ? next
-          : best,
-      twins[0]!,
-    );
-    if (twin?.width_m == null) continue;
-    const apart = position_m - twin.position_m;
-    if (Math.abs(apart) > SAME_SHARE * model.store.bed.length_m) continue;
-    const square = carriedSquare(state, twin.width_m ** 2, apart * direction);
-    if (square === null) continue;
-    const ratio = width_m / Math.sqrt(square);
-    const own = Math.sqrt(state.startWidthVariance_m4) / (2 * square);
-    const sigma = ratio * Math.hypot(width_sigma_m / width_m, own);
-    if (worst === null || ratio - 2 * sigma > worst.ratio - 2 * worst.sigma)
-      worst = { ratio, sigma };
-  }
-  return worst;
-}
-
-/** Twin's width squared at a place `ahead` of it along the present flow; null beyond first order. */
-function carriedSquare(state: TwinState, square: number, ahead: number): number | null {
-  const growth = square - state.startWidth_m2;
-  if (Math.abs(ahead) <= 0.5 * state.travelled_m)
-    return square + (growth * ahead) / state.travelled_m;
-  // Next to nothing travelled, and next to nothing apart: nothing to carry.
-  return Math.abs(ahead) <= 0.1 * Math.sqrt(square) ? square : null;
-}
-
 /** Temperatures of the twin's cells [K], for pages and tests. */
 export function twinTemperatures(model: TwinModel, enthalpy: Float64Array): Float64Array {
   return Float64Array.from(enthalpy, (h) => temperatureAt(model.tables, h));
 }
 
-function profileFronts(model: TwinModel, temperature_K: Float64Array): Fronts {
+/** Fronts of a profile on the twin's cells. */
+export function profileFronts(model: TwinModel, temperature_K: Float64Array): Fronts {
   const { reference_hot_K, reference_cold_K } = model.store;
   return findFronts(model.x_m, temperature_K, reference_hot_K, reference_cold_K);
 }

@@ -33,7 +33,7 @@ export function degC(kelvin: number): string {
 }
 
 export function duration(seconds: number): string {
-  if (seconds < 120) return `${Math.round(seconds)} s`;
+  if (seconds < 300) return `${Math.round(seconds)} s`;
   if (seconds < 7200) return `${Math.round(seconds / 60)} min`;
   return `${(seconds / 3600).toFixed(1)} h`;
 }

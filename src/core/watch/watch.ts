@@ -12,9 +12,10 @@ import {
 import type { EventKind, WatchEvent } from './event.js';
 import { watchEvent } from './kinds.js';
 import * as say from './messages.js';
+import type { SpreadRatio } from './spreadRatio.js';
 
-/** A spread ratio and its sigma [-]; null where front or twin has no width now. */
-export type Spread = { readonly ratio: number; readonly sigma: number } | null;
+/** null where front or twin has no width now. */
+export type Spread = SpreadRatio | null;
 
 export interface WatchInput {
   /** Source time of the scan [ms]. */

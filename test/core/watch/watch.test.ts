@@ -1,0 +1,335 @@
+import fc from 'fast-check';
+import { describe, expect, it } from 'vitest';
+import { SENSOR_VERDICTS, type StoreEstimate } from '../../../src/core/estimate.js';
+import { EVENT_KINDS, type WatchEvent } from '../../../src/core/watch/event.js';
+import { KIND_CLASSES } from '../../../src/core/watch/kinds.js';
+import { startServiceWatch, stepServiceWatch } from '../../../src/core/watch/service.js';
+import { startWatch, stepWatch, type WatchInput } from '../../../src/core/watch/watch.js';
+import { estimateOf, unitOf } from './units.js';
+
+interface Scan extends Partial<WatchInput> {
+  readonly hot?: Partial<StoreEstimate>;
+  readonly cold?: Partial<StoreEstimate>;
+}
+
+/** Runs scans of 30 s; lists [second, event]. */
+function run(
+  scans: readonly Scan[],
+  unit = unitOf(),
+  state = startWatch(),
+): [number, WatchEvent][] {
+  const out: [number, WatchEvent][] = [];
+  scans.forEach(({ hot, cold, ...change }, k) => {
+    const time_ms = change.time_ms ?? 30_000 * k;
+    const input = { mode: 'discharge' as const, spread: {}, readingsSeen: 10, ...change, time_ms };
+    const estimate = estimateOf(time_ms, hot, cold);
+    for (const event of stepWatch(unit, state, { ...input, estimate }))
+      out.push([time_ms / 1000, event]);
+  });
+  return out;
+}
+const times = (n: number, scan: Scan) => Array.from({ length: n }, () => scan);
+const short = (events: [number, WatchEvent][]) =>
+  events.map(([at, e]) => `${at} ${e.id} ${e.transition}`);
+
+describe('kinds of events', () => {
+  it('makes an alarm only of what the operator must act on in time', () => {
+    expect(Object.keys(KIND_CLASSES).sort()).toEqual([...EVENT_KINDS].sort());
+    const alarms = EVENT_KINDS.filter((kind) => KIND_CLASSES[kind].class === 'alarm');
+    expect(alarms).toEqual(['outlet_near_limit']);
+  });
+});
+
+describe('a front that spreads', () => {
+  const spread = (ratio: number, sigma: number): Scan => ({ spread: { hot: { ratio, sigma } } });
+
+  it('is raised where the ratio is beyond the limit by two sigmas, for the store it concerns', () => {
+    const [first, ...rest] = run(times(5, spread(1.6, 0.1)));
+    expect(rest).toEqual([]);
+    expect(first![0]).toBe(60);
+    expect(first![1]).toMatchObject({
+      id: 'one/front_spread/hot',
+      class: 'alert',
+      subject: 'hot',
+      transition: 'raised',
+      time: '1970-01-01T00:01:00.000Z',
+      value: 1.6,
+      limit: 1.3,
+    });
+    expect(first![1].message).toMatch(/1\.60 \+\/- 0\.10 times.*limit 1\.30/);
+  });
+
+  it('is not raised while two sigmas leave room for doubt', () => {
+    expect(run(times(50, spread(1.6, 0.16)))).toEqual([]);
+  });
+
+  it('does not return because the ratio grows uncertain or unknown, only because it is small', () => {
+    const scans = [
+      ...times(4, spread(1.6, 0.1)),
+      ...times(50, spread(1.6, 0.9)),
+      ...times(50, { spread: { hot: null } }),
+      ...times(50, {}),
+      ...times(50, spread(1.25, 0.05)),
+    ];
+    expect(short(run(scans))).toEqual(['60 one/front_spread/hot raised']);
+    const back = run([...scans, ...times(5, spread(1.15, 0.05))]).at(-1)![1];
+    expect(back).toMatchObject({ transition: 'returned', value: 1.15 });
+    expect(back.message).toMatch(/back to 1\.15/);
+  });
+});
+
+describe('a sensor that is rejected', () => {
+  const rejected = (verdict: (typeof SENSOR_VERDICTS)[number]): Scan => ({
+    hot: {
+      sensors: {
+        used: 2,
+        rejected: [{ id: 'hot_a_2', verdict, since: '2026-01-01T00:00:00Z', evidence: '12 K low' }],
+      },
+    },
+  });
+
+  it('is raised and returned with its own delays, and remembers nothing afterwards', () => {
+    const state = startWatch();
+    const scans = [...times(5, rejected('stuck')), ...times(5, {})];
+    const events = run(scans, unitOf(), state);
+    expect(short(events)).toEqual([
+      '60 one/sensor_rejected/hot_a_2 raised',
+      '210 one/sensor_rejected/hot_a_2 returned',
+    ]);
+    expect(Object.keys(state.conditions)).toEqual([]);
+  });
+
+  it('is told with its verdict, the evidence and what to look at, for every verdict', () => {
+    for (const verdict of SENSOR_VERDICTS) {
+      const [, event] = run(times(4, rejected(verdict)))[0]!;
+      expect(event.message).toContain(`(${verdict}: 12 K low)`);
+      expect(event.message).toMatch(/Thermocouple hot_a_2 in store hot .*Look at [a-z].*\.$/);
+      expect(event.message).not.toContain('undefined');
+    }
+  });
+
+  it('is not raised by a verdict that comes and goes', () => {
+    const flapping = Array.from({ length: 60 }, (_, k) => (k % 2 ? rejected('outlier') : {}));
+    expect(run(flapping)).toEqual([]);
+  });
+});
+
+describe('data that grow stale', () => {
+  const silent: Scan = { readingsSeen: 0 };
+
+  it('is raised by scans without a reading, once the age passes the limit, and returns with the first', () => {
+    const events = run([{}, ...times(7, silent), {}, {}]);
+    expect(short(events)).toEqual([
+      '180 one/data_stale/one raised',
+      '240 one/data_stale/one returned',
+    ]);
+    expect(events[0]![1]).toMatchObject({ value: 180, limit: 150 });
+    expect(events[0]![1].message).toMatch(/no reading for 180 s \(limit 150 s\)/);
+    expect(events[1]![1].value).toBe(0);
+  });
+
+  it('counts from the first scan where there never was a reading', () => {
+    expect(short(run(times(8, silent)))).toEqual(['180 one/data_stale/one raised']);
+  });
+
+  it('does not call data stale that come again after a stop of the program', () => {
+    expect(run([{ time_ms: 0 }, { time_ms: 3_600_000 }])).toEqual([]);
+  });
+});
+
+describe('an outlet near its limit', () => {
+  it('is an alarm while discharging, for a hot store that falls and a cold one that rises', () => {
+    const events = run(times(5, { hot: { outlet_K: 680.15 }, cold: { outlet_K: 195.15 } }));
+    expect(short(events)).toEqual([
+      '60 one/outlet_near_limit/hot raised',
+      '60 one/outlet_near_limit/cold raised',
+    ]);
+    expect(events[0]![1]).toMatchObject({ class: 'alarm', priority: 'high', limit: 15 });
+    expect(events[0]![1].value).toBeCloseTo(7, 9);
+    expect(events[0]![1].message).toMatch(/407\.0 degC, 7\.0 K above the limit of 400\.0 degC/);
+    expect(events[1]![1].value).toBeCloseTo(8, 9);
+    expect(events[1]![1].message).toMatch(/-78\.0 degC, 8\.0 K below the limit of -70\.0 degC/);
+  });
+
+  it('says so where the limit is passed already', () => {
+    const [, event] = run(times(5, { hot: { outlet_K: 670.15 } }))[0]!;
+    expect(event.message).toMatch(/3\.0 K past the limit/);
+    expect(event.value).toBeCloseTo(-3, 9);
+  });
+
+  it('is none while charging or standing, and returns when the discharge ends', () => {
+    const near = { hot: { outlet_K: 680.15 } };
+    expect(run(times(20, { ...near, mode: 'charge' }))).toEqual([]);
+    const ended = run([...times(4, near), ...times(5, { mode: 'stand' })]);
+    expect(short(ended)).toEqual([
+      '60 one/outlet_near_limit/hot raised',
+      '180 one/outlet_near_limit/hot returned',
+    ]);
+  });
+
+  it('waits in the deadband, and says nothing while the outlet is not known', () => {
+    const scans = [
+      ...times(4, { hot: { outlet_K: 680.15 } }),
+      ...times(20, { hot: { outlet_K: 690.15 } }),
+      ...times(20, { hot: { outlet_K: null } }),
+    ];
+    expect(run(scans)).toHaveLength(1);
+    expect(run([...scans, ...times(4, { hot: { outlet_K: 694.15 } })])).toHaveLength(2);
+  });
+
+  it('is not watched where the store has no limit', () => {
+    const unit = unitOf();
+    const free = { ...unit, limits: { ...unit.limits, hot_outlet_min_K: null } };
+    expect(run(times(9, { hot: { outlet_K: 300 } }), free)).toEqual([]);
+  });
+});
+
+describe('a front view that disagrees', () => {
+  const view = (disagreement: number | null, seen = true): Scan => ({
+    hot: {
+      front_views: [
+        {
+          id: 'a',
+          position_m: 1,
+          position_sigma_m: 0.1,
+          width_m: null,
+          width_sigma_m: null,
+          seen,
+          disagreement,
+        },
+      ],
+    },
+  });
+
+  it('is raised either way beyond three sigmas for a quarter of an hour, and returns below two', () => {
+    const events = run([...times(40, view(-3.4)), ...times(40, view(1.9))]);
+    expect(short(events)).toEqual([
+      '900 one/front_view_disagrees/hot/a raised',
+      '2100 one/front_view_disagrees/hot/a returned',
+    ]);
+    expect(events[0]![1]).toMatchObject({ class: 'alert', priority: 'low', value: -3.4, limit: 3 });
+    expect(events[0]![1].message).toMatch(/3\.4 sigmas nearer to the charge inlet/);
+  });
+
+  it('says nothing while the view only predicts, and returns where no front is left', () => {
+    expect(run(times(60, view(9, false)))).toEqual([]);
+    const scans = [...times(40, view(5)), ...times(60, view(5, false))];
+    expect(run(scans)).toHaveLength(1);
+    expect(run([...scans, ...times(40, view(null, false))])).toHaveLength(2);
+  });
+});
+
+describe('watching as a whole', () => {
+  const arbitrary = fc.record({
+    mode: fc.constantFrom('charge' as const, 'discharge' as const, 'stand' as const),
+    readingsSeen: fc.integer({ min: 0, max: 1 }),
+    spread: fc.record({
+      hot: fc.option(
+        fc.record({
+          ratio: fc.double({ min: 0.5, max: 3, noNaN: true }),
+          sigma: fc.double({ min: 0, max: 1, noNaN: true }),
+        }),
+      ),
+    }),
+    hot: fc.record({
+      outlet_K: fc.option(fc.double({ min: 600, max: 800, noNaN: true })),
+      sensors: fc.record({
+        used: fc.constant(3),
+        rejected: fc.subarray(
+          ['hot_a_1', 'hot_a_2', 'hot_a_3'].map((id) => ({
+            id,
+            verdict: 'open' as const,
+            since: '2026-01-01T00:00:00Z',
+            evidence: '',
+          })),
+        ),
+      }),
+    }),
+  });
+
+  it('raises and returns in turn for every id, with finite numbers and whole sentences', () => {
+    fc.assert(
+      fc.property(fc.array(arbitrary, { maxLength: 120 }), (scans) => {
+        const state = startWatch();
+        const standing = new Set<string>();
+        for (const [, event] of run(scans, unitOf(), state)) {
+          expect(standing.has(event.id)).toBe(event.transition === 'returned');
+          if (event.transition === 'raised') standing.add(event.id);
+          else standing.delete(event.id);
+          for (const number of [event.value, event.limit])
+            expect(number === null || Number.isFinite(number)).toBe(true);
+          expect(event.message).toMatch(/\.$/);
+          expect(event.message).not.toMatch(/NaN|undefined|null/);
+        }
+        const raised = Object.values(state.conditions).filter((c) => c.raised);
+        expect(raised).toHaveLength(standing.size);
+        // At most one entry per sensor, store, view and unit.
+        expect(Object.keys(state.conditions).length).toBeLessThanOrEqual(3 + 1 + 1 + 1);
+      }),
+      { seed: 5, numRuns: 200 },
+    );
+  });
+
+  it('continues from a saved state as if nothing had been', () => {
+    const scans = times(30, { spread: { hot: { ratio: 1.7, sigma: 0.1 } }, readingsSeen: 0 });
+    const whole = run(scans);
+    const state = startWatch();
+    const first = run(scans.slice(0, 2), unitOf(), state);
+    const rest = run(
+      scans.slice(2).map((scan, k) => ({ ...scan, time_ms: 30_000 * (k + 2) })),
+      unitOf(),
+      structuredClone(state),
+    );
+    expect([...first, ...rest]).toEqual(whole);
+    expect(whole).toHaveLength(2);
+  });
+});
+
+describe('a service that does not answer', () => {
+  const rule = { on_delay_s: 60, off_delay_s: 30 };
+  const attempt = (second: number, reachable: boolean, detail = '') => ({
+    unit: 'one',
+    service: 'InfluxDB',
+    time_ms: 1000 * second,
+    reachable,
+    detail,
+  });
+
+  it('is told once after its delay, with how long and why, and once when it is back', () => {
+    const state = startServiceWatch();
+    const steps = [
+      attempt(0, true),
+      attempt(10, false, 'ECONNREFUSED'),
+      attempt(40, false, 'ECONNREFUSED'),
+      attempt(70, false, 'ECONNREFUSED'),
+      attempt(100, false, 'ECONNREFUSED'),
+      attempt(110, true),
+      attempt(140, true),
+      attempt(170, true),
+    ].map((input) => stepServiceWatch(rule, state, input));
+    const events = steps.filter((event) => event !== null);
+    expect(steps.map((event) => event?.transition ?? null)).toEqual([
+      ...[null, null, null, 'raised', null, null, 'returned', null],
+    ]);
+    expect(events[0]).toMatchObject({
+      id: 'one/database_unreachable/InfluxDB',
+      class: 'alert',
+      value: 60,
+      limit: 60,
+    });
+    expect(events[0]!.message).toMatch(/InfluxDB .* 60 s \(ECONNREFUSED\)\. Nothing is lost/);
+  });
+
+  it('forgets a failure that was over before the delay', () => {
+    const state = startServiceWatch();
+    for (let k = 0; k < 40; k++)
+      expect(stepServiceWatch(rule, state, attempt(30 * k, k % 2 === 0))).toBeNull();
+  });
+
+  it('stands still while a clock that was set back catches up', () => {
+    const state = startServiceWatch();
+    stepServiceWatch(rule, state, attempt(1000, false));
+    expect(stepServiceWatch(rule, state, attempt(400, false))).toBeNull();
+    expect(stepServiceWatch(rule, state, attempt(1060, false))?.transition).toBe('raised');
+  });
+});
