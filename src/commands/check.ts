@@ -4,6 +4,7 @@ import { ConfigFault, loadSite } from '../config/load.js';
 import { referenceText } from '../config/reference.js';
 import { RockhourError } from '../errors.js';
 import { factsAsText } from './check/print.js';
+import { siteNotes } from './check/siteNotes.js';
 import { unitFacts } from './check/unitFacts.js';
 
 interface CheckOptions {
@@ -38,7 +39,11 @@ function answer(options: CheckOptions): string {
     const site = loadSite(config);
     const units = site.units.map(unitFacts);
     return json
-      ? JSON.stringify({ file: config, sound: true, name: site.name, units }, null, 2)
+      ? JSON.stringify(
+          { file: config, sound: true, name: site.name, notes: siteNotes(site), units },
+          null,
+          2,
+        )
       : factsAsText(config, site, units);
   } catch (error) {
     // With --json the faults are the answer; the message on standard error stays as it is.

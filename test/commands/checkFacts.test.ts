@@ -1,4 +1,5 @@
 import { describe, expect, it } from 'vitest';
+import { siteNotes } from '../../src/commands/check/siteNotes.js';
 import { storeFacts } from '../../src/commands/check/storeFacts.js';
 import { unitFacts } from '../../src/commands/check/unitFacts.js';
 import { EXAMPLES, siteOf } from '../config/sites.js';
@@ -143,5 +144,32 @@ describe('facts of a unit', () => {
     expect(noted((d) => (d.units[0].stores[0].strings[0].positions_m = [0.5, 4.5, 8.5]))).toMatch(
       /hot: 0\.5 thermocouples per front/,
     );
+  });
+});
+
+describe('notes on a site', () => {
+  it('are silent where everything stays on this machine', () => {
+    expect(siteNotes(siteOf('demo'))).toEqual([]);
+  });
+
+  it('warn of a page and a broker that are open to a network', () => {
+    const site = siteOf('demo', (d) => {
+      d.http = { host: '0.0.0.0' };
+      d.mqtt.embedded_host = 'plant-gateway';
+    });
+    expect(siteNotes(site).map((note) => note.split(':')[0])).toEqual([
+      'http.host 0.0.0.0',
+      'mqtt.embedded_host plant-gateway',
+    ]);
+  });
+
+  it('warn of passwords on an unencrypted line', () => {
+    const site = siteOf('hot-air');
+    const withPassword = { ...site, mqtt: { ...site.mqtt, password: 'x' } };
+    expect(siteNotes(site)).toEqual([]);
+    expect(siteNotes(withPassword)).toHaveLength(1);
+    expect(
+      siteNotes({ ...site, mqtt: { ...withPassword.mqtt, url: 'mqtts://broker:8883' } }),
+    ).toEqual([]);
   });
 });

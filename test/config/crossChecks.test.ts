@@ -349,6 +349,23 @@ const CASES: readonly Case[] = [
     /seem to stand/,
   ],
   [
+    'a thermocouple type that does not reach the temperatures',
+    'hot-air',
+    (u) => (u.stores[0].strings[0].thermocouple_type = 'T'),
+    'units[0].stores[0].strings[0].thermocouple_type',
+    /type T covers -270 to 400 degC/,
+  ],
+  [
+    'a pressure ratio that the loop eats up',
+    'demo',
+    (u) => {
+      Object.assign(u.machine, { high_pressure_bar: 1.06, loop_pressure_loss: 0.05 });
+      u.stores[0].pressure_bar = 1.06;
+    },
+    'units[0].machine.loop_pressure_loss',
+    /leaves the expander a pressure/,
+  ],
+  [
     'two units of a name',
     'demo',
     (u, site) => site.units.push({ ...structuredClone(u) }),

@@ -1,5 +1,6 @@
 import type { SiteConfig } from '../../config/site.js';
 import type { HalfCycle, HalfEnd } from './cycle.js';
+import { siteNotes } from './siteNotes.js';
 import type { StoreFacts } from './storeFacts.js';
 import type { DirectionFacts, UnitFacts } from './unitFacts.js';
 
@@ -16,7 +17,8 @@ export function factsAsText(file: string, site: SiteConfig, units: readonly Unit
     `Store    ${site.store.folder}`,
     `Page     http://${site.http.host}:${site.http.port}${site.http.path_prefix}`,
   ];
-  return [head.join('\n'), ...units.map(unitText)].join('\n\n');
+  const open = notesText(siteNotes(site));
+  return [head.join('\n'), ...(open === '' ? [] : [open]), ...units.map(unitText)].join('\n\n');
 }
 
 function unitText(unit: UnitFacts): string {

@@ -54,6 +54,23 @@ function cycleFaults(unit: UnitBlock, path: Path): CrossFault[] {
         },
       ),
     );
+  } else if (
+    (m.high_pressure_bar / m.low_pressure_bar) * (1 - m.loop_pressure_loss / 2) ** 2 <=
+    1
+  ) {
+    faults.push(
+      cross(
+        [...at, 'loop_pressure_loss'],
+        m.loop_pressure_loss,
+        'a loss that leaves the expander a pressure to work with: (high/low) (1 - loss/2)^2 above 1',
+        {
+          others: [
+            [...at, 'high_pressure_bar'],
+            [...at, 'low_pressure_bar'],
+          ],
+        },
+      ),
+    );
   } else {
     unit.stores.forEach((store, s) => {
       const key = store.kind === 'hot' ? 'high_pressure_bar' : 'low_pressure_bar';

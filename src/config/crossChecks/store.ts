@@ -1,3 +1,4 @@
+import { thermocoupleRange_degC } from '../../core/thermocouple/its90.js';
 import { ZERO_CELSIUS_K } from '../../core/units.js';
 import { dewPoint_K } from '../dewPoint.js';
 import { expandString } from '../expand.js';
@@ -112,6 +113,7 @@ function stringFaults(
     ...placeFaults(store, string, storePath, path),
     ...nameFaults(store, string, path),
     ...rawUnitFaults(string, path),
+    ...typeFaults(store, string, storePath, path),
   ];
 }
 
@@ -235,4 +237,31 @@ function nameFaults(store: StoreBlock, string: StringBlock, path: Path): CrossFa
     }
   }
   return faults;
+}
+
+/** A type whose reference function does not reach the store's temperatures is the wrong letter. */
+function typeFaults(
+  store: StoreBlock,
+  string: StringBlock,
+  storePath: Path,
+  path: Path,
+): CrossFault[] {
+  const type = string.thermocouple_type;
+  if (type === undefined || string.unit !== 'mV') return [];
+  const [low, high] = thermocoupleRange_degC(type);
+  if (store.reference_cold_degC >= low && store.reference_hot_degC <= high) return [];
+  return [
+    cross(
+      [...path, 'thermocouple_type'],
+      type,
+      `a type that covers the store, ${store.reference_cold_degC} to ${store.reference_hot_degC} degC; type ${type} covers ${low} to ${high} degC`,
+      {
+        others: [
+          [...storePath, 'reference_cold_degC'],
+          [...storePath, 'reference_hot_degC'],
+          [...path, 'unit'],
+        ],
+      },
+    ),
+  ];
 }

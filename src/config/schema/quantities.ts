@@ -10,4 +10,4 @@ export const FLOW_UNITS = unitsOf('flow');
 export const POWER_UNITS = unitsOf('power');
 export const PRESSURE_UNITS = unitsOf('pressure');
 export const VALVE_UNITS = unitsOf('valve');
-export const THERMOCOUPLE_TYPES = ['K', 'N', 'T', 'J'] as const;
+export { THERMOCOUPLE_TYPES } from '../../core/thermocouple/its90.js';
