@@ -48,8 +48,9 @@ function answer(options: CheckOptions): string {
   } catch (error) {
     // With --json the faults are the answer; the message on standard error stays as it is.
     if (json && error instanceof ConfigFault) {
-      const faults = { file: config, sound: false, faults: error.faults };
-      process.stdout.write(`${JSON.stringify(faults, null, 2)}\n`);
+      const { faults, more_may_follow } = error;
+      const found = { file: config, sound: false, more_may_follow, faults };
+      process.stdout.write(`${JSON.stringify(found, null, 2)}\n`);
     }
     throw error;
   }

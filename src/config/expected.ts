@@ -39,14 +39,14 @@ function kindWords(schema: z.ZodType): string {
       isRequired(schema.shape[k] as z.ZodType),
     );
     return required.length === 0
-      ? 'a block of keys'
+      ? `a block with any of the keys ${Object.keys(schema.shape).join(', ')}`
       : `a block with the keys ${required.join(', ')}`;
   }
   if (schema instanceof z.ZodString) return noteOf(schema).form ?? 'a text';
   const json = z.toJSONSchema(schema, { io: 'input', unrepresentable: 'any' }) as JsonNode;
   if (schema instanceof z.ZodArray) {
-    const count = rangeWords(json.minItems, undefined, json.maxItems);
-    return `a list${count === '' ? '' : ` of ${count} entries`}, each ${kindWords(bare(schema.element as z.ZodType))}`;
+    const count = countWords(json.minItems, json.maxItems);
+    return `a list${count}, each ${kindWords(bare(schema.element as z.ZodType))}`;
   }
   const whole = json.type === 'integer' ? 'a whole number' : 'a number';
   const range = rangeWords(json.minimum, json.exclusiveMinimum, json.maximum);
@@ -72,4 +72,10 @@ function rangeWords(
   if (min !== undefined && min > Number.MIN_SAFE_INTEGER) parts.push(`from ${min}`);
   if (max !== undefined && max < Number.MAX_SAFE_INTEGER) parts.push(`up to ${max}`);
   return parts.join(' ');
+}
+
+function countWords(min: number | undefined, max: number | undefined): string {
+  if (max === undefined) return '';
+  if (min === undefined) return ` of at most ${max} entries`;
+  return min === max ? ` of ${min} entries` : ` of ${min} to ${max} entries`;
 }

@@ -20,8 +20,9 @@ export class ConfigFault extends RockhourError {
     code: 'CONFIG_INVALID' | 'CONFIG_UNREADABLE',
     readonly file: string,
     readonly faults: readonly Fault[],
+    readonly more_may_follow: boolean,
   ) {
-    super(code, faultsAsText(file, faults));
+    super(code, faultsAsText(file, faults, more_may_follow));
   }
 }
 
@@ -71,7 +72,11 @@ function shorten(text: string): string {
 }
 
 /** The faults as a person reads them, in the order of the file. */
-export function faultsAsText(file: string, faults: readonly Fault[]): string {
+export function faultsAsText(
+  file: string,
+  faults: readonly Fault[],
+  more_may_follow = false,
+): string {
   const count = faults.length === 1 ? '1 fault' : `${faults.length} faults`;
   const lines = [`${file}: ${count}`];
   for (const fault of faults) {
@@ -79,6 +84,12 @@ export function faultsAsText(file: string, faults: readonly Fault[]): string {
     lines.push('', `  ${where}${fault.path}`);
     lines.push(`    found     ${fault.found}`, `    expected  ${fault.expected}`);
     if (fault.hint !== null) lines.push(`    hint      ${fault.hint}`);
+  }
+  if (more_may_follow) {
+    lines.push(
+      '',
+      '  With these, contradictions between keys could not be looked for: more may follow.',
+    );
   }
   return lines.join('\n');
 }

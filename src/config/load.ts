@@ -17,15 +17,20 @@ const MOST_BYTES = 4 * 1024 * 1024;
  */
 export function loadSite(path: string): SiteConfig {
   const parsed = parseSite(readText(path), dirname(resolve(path)));
-  if (parsed.faults !== undefined) throw new ConfigFault('CONFIG_INVALID', path, parsed.faults);
+  if (parsed.faults !== undefined) {
+    throw new ConfigFault('CONFIG_INVALID', path, parsed.faults, parsed.more_may_follow);
+  }
   return parsed.site;
 }
 
 function readText(path: string): string {
   const unreadable = (found: string): ConfigFault =>
-    new ConfigFault('CONFIG_UNREADABLE', path, [
-      { path: '(whole file)', line: null, found, expected: 'a site file in YAML', hint: null },
-    ]);
+    new ConfigFault(
+      'CONFIG_UNREADABLE',
+      path,
+      [{ path: '(whole file)', line: null, found, expected: 'a site file in YAML', hint: null }],
+      false,
+    );
   let bytes: Buffer;
   try {
     bytes = readFileSync(path);

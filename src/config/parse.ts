@@ -12,7 +12,12 @@ import { type RawFault, structureFaults } from './structure.js';
 
 export type Parsed =
   | { readonly site: SiteConfig; readonly faults?: never }
-  | { readonly faults: readonly Fault[]; readonly site?: never };
+  | {
+      readonly faults: readonly Fault[];
+      /** True where the file is so broken that contradictions between keys could not be looked for. */
+      readonly more_may_follow: boolean;
+      readonly site?: never;
+    };
 
 /**
  * A site file's text becomes a frozen SiteConfig, or every fault of it at once, in the order of
@@ -27,14 +32,17 @@ export function parseSite(
   const lines = new LineCounter();
   const document = parseDocument(text, { lineCounter: lines, prettyErrors: false });
   if (document.errors.length > 0) {
-    return { faults: document.errors.map((error) => yamlFault(error, lines)) };
+    return {
+      faults: document.errors.map((error) => yamlFault(error, lines)),
+      more_may_follow: true,
+    };
   }
   let data: unknown;
   try {
     data = document.toJS();
   } catch {
     // Aliases that expand without end are the only way here; the text may hold a secret.
-    return { faults: [wholeFile('aliases (*) that cannot be followed')] };
+    return { faults: [wholeFile('aliases (*) that cannot be followed')], more_may_follow: true };
   }
   const located = (raw: readonly RawFault[]): Fault[] =>
     raw
@@ -51,10 +59,10 @@ export function parseSite(
   const sound = siteSchema.safeParse(data);
   if (!sound.success) {
     const mended = repair(siteSchema, data, structural);
-    if (mended === null) return { faults: located(structural) };
+    if (mended === null) return { faults: located(structural), more_may_follow: true };
     const block = siteSchema.parse(mended.data);
     const concluded = crossFaults(block).filter((f) => !restsOn(f.about, mended.invented));
-    return { faults: located([...structural, ...concluded]) };
+    return { faults: located([...structural, ...concluded]), more_may_follow: false };
   }
   const block: SiteBlock = sound.data;
   const { secrets, faults: secretFaults } = readSecrets(block, baseFolder, environment);
@@ -62,7 +70,7 @@ export function parseSite(
     ...crossFaults(block),
     ...secretFaults.map((f) => ({ ...f, atKey: false, hint: null })),
   ];
-  if (raw.length > 0) return { faults: located(raw) };
+  if (raw.length > 0) return { faults: located(raw), more_may_follow: false };
   return { site: deepFreeze(resolveSite(block, baseFolder, secrets)) };
 }
 

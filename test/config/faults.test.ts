@@ -122,6 +122,15 @@ describe('faults of a site file', () => {
     expect(faults.map((f) => f.path)).toEqual(['units[0].stores[0].bed.height_m']);
   });
 
+  it('tell where contradictions could not be looked for', () => {
+    const text = exampleText('demo').replace(/limits:\n(?: {6,}.*\n)+/, 'limits: none\n');
+    const parsed = parseSite(text, CONFIG_FOLDER, {});
+    expect(parsed.faults?.map((f) => f.path)).toEqual(['units[0].limits']);
+    expect(parsed).toMatchObject({ more_may_follow: true });
+    expect(faultsAsText('x', parsed.faults!, true)).toMatch(/more may follow\.$/);
+    expect(parseSite('name: 3', CONFIG_FOLDER, {})).toMatchObject({ more_may_follow: true });
+  });
+
   it('read as sentences with one block per fault', () => {
     const faults = faultsOf('demo', (d) => {
       d.units[0].scan_period_s = 0;
