@@ -35,25 +35,46 @@ export function meanTemperatures(model: StoreModel, state: StoreState): Float64A
   return mean;
 }
 
+/** Fronts of the store's area-mean profile with their sigmas, ordered by x. */
+export function storeFronts(
+  model: StoreModel,
+  state: StoreState,
+): { fronts: FrontEstimate[]; reason: FrontReason | null } {
+  if (!state.started) return { fronts: [], reason: 'not_started' };
+  const { store } = model;
+  const mean = meanTemperatures(model, state);
+  const found = findFronts(cellCentres(model), mean, store.reference_hot_K, store.reference_cold_K);
+  const covariance = meanCovariance(model, state, storeEnergy(model, state).correlation);
+  return { fronts: found.fronts.map((f) => describe(f, covariance)), reason: found.reason };
+}
+
+/** Energy-equivalent position of the store: the area-weighted mean of its tubes' [m]. */
+export function storeEnergyPosition(model: StoreModel, state: StoreState): number {
+  const { charged, discharged } = referenceEnthalpies(model);
+  return model.tubes.reduce((sum, tube, k) => {
+    const { enthalpy } = state.tubes[k] as TubeState;
+    const dx = model.store.bed.length_m / enthalpy.length;
+    return sum + tube.string.area_share * energyPosition(enthalpy, dx, charged, discharged);
+  }, 0);
+}
+
 /** What a store publishes, but for the front views and the spread ratio, which come from outside. */
 export function estimateStore(
   model: StoreModel,
   state: StoreState,
-  extra: { front_views: FrontViewEstimate[]; spread_ratio: number | null; flowing: boolean },
+  extra: {
+    front_views: FrontViewEstimate[];
+    spread_ratio: number | null;
+    flowing: boolean;
+    fronts: ReturnType<typeof storeFronts>;
+  },
 ): StoreEstimate {
   const energy = storeEnergy(model, state);
   const { store } = model;
-  const x = cellCentres(model);
-  const mean = meanTemperatures(model, state);
-  const found = findFronts(x, mean, store.reference_hot_K, store.reference_cold_K);
-  const { charged, discharged } = referenceEnthalpies(model);
-  const reason: FrontReason | null = state.started ? found.reason : 'not_started';
-  let position = 0;
   let outlet = 0;
   model.tubes.forEach((tube, k) => {
     const tubeState = state.tubes[k] as TubeState;
     const w = tube.string.area_share;
-    position += w * energyPosition(tubeState.enthalpy, x[0]! * 2, charged, discharged);
     outlet += w * tubeState.outlet_K;
   });
   const transfer = meanFactor(model, state, 'transfer');
@@ -62,19 +83,13 @@ export function estimateStore(
     soc_sigma: energy.soc_sigma,
     stored_MWh_th: energy.stored_MWh_th,
     stored_sigma_MWh_th: energy.stored_sigma_MWh_th,
-    fronts: state.started
-      ? found.fronts.map((front) =>
-          describe(front, meanCovariance(model, state, energy.correlation)),
-        )
-      : [],
-    fronts_reason: reason,
-    energy_position_m: position,
+    fronts: extra.fronts.fronts,
+    fronts_reason: extra.fronts.reason,
+    energy_position_m: storeEnergyPosition(model, state),
     spread_ratio: extra.spread_ratio,
     heat_transfer_factor: store.bed.heat_transfer_factor * transfer.value,
     heat_transfer_factor_sigma: store.bed.heat_transfer_factor * transfer.sigma,
-    strings: model.tubes.map((tube, k) =>
-      describeString(model, tube, state.tubes[k] as TubeState, x),
-    ),
+    strings: model.tubes.map((tube, k) => describeString(model, tube, state.tubes[k] as TubeState)),
     front_views: extra.front_views,
     sensors: { used: state.used, rejected: rejectedSensors(model, state) },
     outlet_K: extra.flowing && Number.isFinite(outlet) ? outlet : null,
@@ -103,17 +118,20 @@ function describe(front: FoundFront, covariance: Covariance): FrontEstimate {
   };
 }
 
-function describeString(
-  model: StoreModel,
-  tube: TubeModel,
-  state: TubeState,
-  x: Float64Array,
-): StringEstimate {
-  const { flow, size, cells } = tube.layout;
-  const own = tubeTemperatures(tube, state, new Float64Array(cells));
+/** Fronts of one tube, ordered by x, with their sigmas. */
+export function tubeFronts(model: StoreModel, tube: TubeModel, state: TubeState): FrontEstimate[] {
   const { store } = model;
-  const found = findFronts(x, own, store.reference_hot_K, store.reference_cold_K);
-  const front = found.fronts[0];
+  const { size, cells } = tube.layout;
+  const own = tubeTemperatures(tube, state, new Float64Array(cells));
+  const x = cellCentres(model);
+  const { fronts } = findFronts(x, own, store.reference_hot_K, store.reference_cold_K);
+  const covariance: Covariance = (i, j) => state.covariance[i * size + j] as number;
+  return fronts.map((front) => describe(front, covariance));
+}
+
+function describeString(model: StoreModel, tube: TubeModel, state: TubeState): StringEstimate {
+  const { flow, size, cells } = tube.layout;
+  const front = tubeFronts(model, tube, state)[0];
   const factor = Math.exp(state.further[flow - cells] as number);
   return {
     id: tube.string.id,

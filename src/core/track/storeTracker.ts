@@ -192,7 +192,7 @@ function judgeAll(
       if (Number.isFinite(value)) {
         present++;
         if (
-          (state.sensors[k]?.[s] as SensorMemory).verdict === null &&
+          state.sensors[k]?.[s]?.verdict === null &&
           Math.abs(value - reading.value_K) > 4.5 * sigma
         ) {
           beyond++;

@@ -1,0 +1,85 @@
+import { computeHours } from './dispatch/hours.js';
+import { hoursInput, stateOfCharge } from './dispatch/unitHours.js';
+import type { Estimate, ProfileView, Quality, StoreEstimate } from './estimate.js';
+import type { Scan } from './scan/scan.js';
+import { estimateStore, profileOf } from './track/storeEstimate.js';
+import type { StoreState } from './track/storeTracker.js';
+import { describeViews, type StoreViews, storeSpread } from './track/storeViews.js';
+import type { UnitAsk, UnitStep } from './unit.js';
+import type { UnitModel } from './unitModel.js';
+import type { UnitState } from './unitState.js';
+import type { Taken, TakenStore } from './unitTakeIn.js';
+import { type Spread, stepWatch } from './watch/watch.js';
+
+/** The estimate of a scan just taken in, the hours asked for, and what the watch raises. */
+export function describe(
+  model: UnitModel,
+  state: UnitState,
+  scan: Scan,
+  taken: Taken,
+  ask: UnitAsk,
+): UnitStep {
+  const { unit } = model;
+  const flowing = taken.conditions.flow_kg_s !== 0;
+  const stores: Record<string, StoreEstimate> = {};
+  const spread: Record<string, Spread> = {};
+  model.stores.forEach((store, s) => {
+    const { fronts, views } = taken.stores[s] as TakenStore;
+    const storeState = state.stores[s] as StoreState;
+    const ratio = storeSpread(store, storeState, state.views[s] as StoreViews, fronts.fronts);
+    spread[store.store.id] = ratio;
+    stores[store.store.id] = estimateStore(store, storeState, {
+      front_views: describeViews(store, storeState, views),
+      spread_ratio: ratio?.ratio ?? null,
+      flowing,
+      fronts,
+    });
+  });
+  const input = hoursInput(model, state, scan, taken.conditions.ambient_K);
+  const time = new Date(scan.time_ms).toISOString();
+  const estimate: Estimate = {
+    time,
+    unit: unit.id,
+    revision: 0,
+    mode: taken.conditions.mode,
+    quality: qualityOf(model, state, scan, taken),
+    state_of_charge: stateOfCharge(model, state, scan, input, taken.modeChanged),
+    stores,
+  };
+  if (ask.hours_at_W.length > 0) {
+    estimate.dispatch = ask.hours_at_W.map((power) => computeHours(input, power));
+  }
+  const profile: ProfileView | null = ask.profile
+    ? {
+        time,
+        unit: unit.id,
+        stores: Object.fromEntries(
+          model.stores.map((store, s) => [
+            store.store.id,
+            profileOf(store, state.stores[s] as StoreState, scan.values),
+          ]),
+        ),
+      }
+    : null;
+  const events = stepWatch(unit, state.watch, {
+    time_ms: scan.time_ms,
+    mode: taken.conditions.mode,
+    estimate,
+    spread,
+    readingsSeen: taken.readings,
+  });
+  return { estimate, profile, events };
+}
+
+function qualityOf(model: UnitModel, state: UnitState, scan: Scan, taken: Taken): Quality {
+  const age_s = state.seen_ms === null ? Infinity : (scan.time_ms - state.seen_ms) / 1000;
+  if (age_s > model.unit.watch.data_age_s.limit) return 'stale';
+  if (taken.stores.some(({ step }) => step === 'missed' || step === 'not_started')) return 'blind';
+  const used = state.stores.reduce((sum, store) => sum + store.used, 0);
+  if (used === 0 && !taken.conditions.flowKnown) return 'blind';
+  const settled = state.stores.every((store) => store.settled >= 10);
+  if (!taken.conditions.flowKnown || used < 0.6 * model.thermocouples.length || !settled) {
+    return 'degraded';
+  }
+  return 'good';
+}

@@ -1,0 +1,24 @@
+import type { Direction, Mode } from './definitions.js';
+import type { MachineFactor } from './dispatch/machineFactor.js';
+import type { ConditionsState } from './track/conditions.js';
+import type { StoreState } from './track/storeTracker.js';
+import type { StoreViews } from './track/storeViews.js';
+import type { WatchState } from './watch/watch.js';
+
+/** Everything a unit remembers; owned by whoever holds it, changed only by `advance`. */
+export interface UnitState {
+  /** Source time of the last scan taken in, null before the first. */
+  time_ms: number | null;
+  readonly conditions: ConditionsState;
+  readonly stores: StoreState[];
+  /** Front views and healthy twin of each store. */
+  readonly views: StoreViews[];
+  readonly factors: Record<Direction, MachineFactor>;
+  readonly watch: WatchState;
+  /** Source time of the last scan with any thermocouple reading. */
+  seen_ms: number | null;
+  mode: Mode;
+  /** Last state of charge by rollout, when, and the least store state of charge then. */
+  charge: { value: number; time_ms: number; least: number } | null;
+  readonly unknownTravel_m: number[];
+}

@@ -1,0 +1,78 @@
+import { learnMachine } from './dispatch/unitHours.js';
+import type { FrontEstimate, FrontReason } from './estimate.js';
+import type { Scan } from './scan/scan.js';
+import { type Conditions, readConditions } from './track/conditions.js';
+import { driveOf, storeOutlets, unknownTravel } from './track/drive.js';
+import type { FrontViewStep } from './track/frontView.js';
+import { storeFronts } from './track/storeEstimate.js';
+import { type StoreState, type StoreStep, stepStore } from './track/storeTracker.js';
+import { type StoreViews, stepViews } from './track/storeViews.js';
+import type { UnitModel } from './unitModel.js';
+import type { UnitState } from './unitState.js';
+
+/** What taking a scan in has shown, for the estimate that describes it. */
+export interface Taken {
+  readonly conditions: Conditions;
+  readonly stores: readonly TakenStore[];
+  /** Thermocouple readings, and readings of any channel, in this scan. */
+  readonly thermocouples: number;
+  readonly readings: number;
+  readonly modeChanged: boolean;
+}
+
+export interface TakenStore {
+  readonly step: StoreStep;
+  readonly fronts: { fronts: FrontEstimate[]; reason: FrontReason | null };
+  readonly views: readonly FrontViewStep[];
+}
+
+/** Takes one scan into a unit's state: conditions, tubes, front views, twin, machine factor. */
+export function takeIn(model: UnitModel, state: UnitState, scan: Scan): Taken {
+  const { unit } = model;
+  const dt_s = state.time_ms === null ? 0 : (scan.time_ms - state.time_ms) / 1000;
+  const outlets = storeOutlets(model, state, scan);
+  const conditions = readConditions(
+    unit,
+    model.map,
+    model.machine,
+    state.conditions,
+    scan,
+    dt_s,
+    outlets,
+  );
+  const thermocouples = model.thermocouples.filter((i) => Number.isFinite(scan.values[i])).length;
+  if (thermocouples > 0) state.seen_ms = scan.time_ms;
+  const stores = model.stores.map((store, s): TakenStore => {
+    const travel = unknownTravel(model, state, s, dt_s, conditions);
+    const drive =
+      state.time_ms === null ? null : driveOf(model, s, conditions, scan, dt_s, outlets, travel);
+    const storeState = state.stores[s] as StoreState;
+    const step = stepStore(
+      store,
+      storeState,
+      drive,
+      scan.values,
+      scan.time_ms,
+      state.unknownTravel_m[s] as number,
+    );
+    const fronts = storeFronts(store, storeState);
+    const unknown = state.unknownTravel_m[s] as number;
+    if (step === 'updated' || step === 'reacquired') state.unknownTravel_m[s] = 0;
+    const views = stepViews(
+      store,
+      storeState,
+      state.views[s] as StoreViews,
+      drive,
+      scan.values,
+      fronts.fronts,
+      unknown,
+    );
+    return { step, fronts, views };
+  });
+  const modeChanged = conditions.mode !== state.mode;
+  learnMachine(model, state, conditions, dt_s, modeChanged, outlets);
+  state.mode = conditions.mode;
+  state.time_ms = scan.time_ms;
+  const readings = scan.values.reduce((n, v) => n + (Number.isFinite(v) ? 1 : 0), 0);
+  return { conditions, stores, thermocouples, readings, modeChanged };
+}
