@@ -16,6 +16,7 @@ interface KeptEvent {
  *     hello  first of every connection: site, version, units, heartbeat, and whether it resumes
  *     state  the newest state of a unit; newer ones replace those that a client has not yet got
  *     event  an alarm or alert raised or returned; every one of them, in order
+ *     alarms something was acknowledged: ask /api/alarms again
  *     beat   a sign of life with the age of each unit's readings
  *
  * Only `hello` and `event` carry an id, `${run}-${sequence}`: the run is drawn anew at each start,
@@ -88,6 +89,12 @@ export class LiveStream {
     }
     for (const unit of this.service.unitIds()) this.sendState(unit, [client]);
     client.push('beat', this.beatText());
+  }
+
+  /** Tells every client that the list of what stands is another one, without an event. */
+  standingChanged(): void {
+    const text = message('alarms', '{}', null);
+    for (const client of this.clients) client.push('alarms', text);
   }
 
   /** Kept events after `lastId`; null where it cannot be told which were missed. */

@@ -51,7 +51,7 @@ const live = new LiveConnection((profileOf, id) => api.streamUrl(profileOf, id),
     void reloadAlarms();
   },
   state: (state) => model.takeState(state),
-  event: () => void reloadAlarms(),
+  alarms: () => void reloadAlarms(),
   beat: (beat) => model.takeBeat(beat),
   lost: () => model.setConnection('lost'),
 });

@@ -143,11 +143,11 @@ describe('the good answers, each held against the schema that documents it', () 
   it('gives only the series and span asked for', async () => {
     const { get } = await app();
     const answer = await get(
-      '/api/units/north/history?from=2026-01-31T02:00:00%2B01:00&to=2026-01-31T04:00:00Z&series=hours_p50&points=3',
+      '/api/units/north/history?from=2026-01-31T02:00:00%2B01:00&to=2026-01-31T04:00:00Z&series=hours_p50_at_2_MW&points=3',
     );
     const { rows, from } = unitHistorySchema.parse(answer.json());
     expect(from).toBe('2026-01-31T01:00:00.000Z');
-    expect(Object.keys(rows[0]!)).toEqual(['time', 'hours_p50']);
+    expect(Object.keys(rows[0]!)).toEqual(['time', 'hours_p50_at_2_MW']);
   });
 
   it('gives the history as CSV by format and by Accept, with empty fields for null', async () => {

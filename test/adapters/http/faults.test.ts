@@ -109,7 +109,7 @@ describe('a wrong question', () => {
 
   it('about an unknown series says which there are', async () => {
     const { get } = await app();
-    const answer = await get(`${history}?series=hours_p50,warmth`);
+    const answer = await get(`${history}?series=hours_p50_at_2_MW,warmth`);
     expect(answer.statusCode).toBe(400);
     expect(answer.json().error).toMatchObject({ code: 'unknown_series', value: 'warmth' });
     expect(answer.json().error.expected).toContain('state_of_charge');

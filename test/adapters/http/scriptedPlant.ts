@@ -262,9 +262,13 @@ export class ScriptedPlant implements PlantService {
   }
 
   historySeries(): string[] {
-    return ['state_of_charge', 'hours_p90', 'hours_p50', 'hours_p10', 'quality'];
+    const hours = ['p90', 'p50', 'p10'].flatMap((level) =>
+      [1, 2].map((power) => `hours_${level}_at_${power}_MW`),
+    );
+    return ['state_of_charge', ...hours, 'quality'];
   }
 
+  /** Hours only in every fifth row, as the daemon works them out less often than it scans. */
   history(_unit: string, from_ms: number, to_ms: number, points: number): HistoryPoint[] {
     const rows = Math.min(points, 300);
     return Array.from({ length: rows }, (_, i) => {
@@ -272,12 +276,17 @@ export class ScriptedPlant implements PlantService {
       const hoursBack = (START_MS + this.scans * 30_000 - t) / 3_600_000;
       const charged = Math.abs(((((this.moment.charged + hoursBack / 10) % 2) + 2) % 2) - 1);
       const gap = i % 97 === 96;
+      const at = (power: number, share: number) =>
+        gap || i % 5 !== 0 ? null : (charged * 16 * share) / power;
       return {
         time: new Date(t).toISOString(),
         state_of_charge: gap ? null : charged,
-        hours_p90: gap ? null : charged * 7.6,
-        hours_p50: gap ? null : charged * 8,
-        hours_p10: gap ? null : charged * 8.3,
+        hours_p90_at_1_MW: at(1, 0.95),
+        hours_p50_at_1_MW: at(1, 1),
+        hours_p10_at_1_MW: at(1, 1.04),
+        hours_p90_at_2_MW: at(2, 0.95),
+        hours_p50_at_2_MW: at(2, 1),
+        hours_p10_at_2_MW: at(2, 1.04),
         quality: 'good',
       };
     });

@@ -158,6 +158,21 @@ describe('the live stream', () => {
     back.close();
   });
 
+  it('tells every client when one has acknowledged', async () => {
+    await serve();
+    const client = stream();
+    const { id } = plant.raise({ kind: 'front_spread', subject: 'hot' });
+    await waitFor('the beat', () => client.of('beat').length > 0);
+    expect(client.of('alarms')).toHaveLength(0);
+    await fetch(`${url}api/alarms/acknowledge`, {
+      method: 'POST',
+      headers: { 'content-type': 'application/json' },
+      body: JSON.stringify({ id, who: 'day shift' }),
+    });
+    await waitFor('the news', () => client.of('alarms').length === 1);
+    client.close();
+  });
+
   it('beats with the age of the readings', async () => {
     plant.age_s = 42;
     plant.stale = true;

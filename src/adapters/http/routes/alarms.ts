@@ -15,7 +15,7 @@ function newestTime(service: PlantService, unit: string | undefined): string | u
 }
 
 /** GET /api/alarms, GET /api/events, POST /api/alarms/acknowledge */
-export const alarmRoutes: Routes = (app, { service }) => {
+export const alarmRoutes: Routes = (app, { service, stream }) => {
   const tags = ['alarms'];
 
   app.get(
@@ -81,6 +81,7 @@ export const alarmRoutes: Routes = (app, { service }) => {
           { field: 'id', value: id, expected },
         );
       }
+      stream.standingChanged();
       const standing = service.standing().find((event) => event.id === id) ?? null;
       return { id, acknowledged_by: who, standing };
     },

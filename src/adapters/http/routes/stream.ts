@@ -49,7 +49,7 @@ export const streamRoutes: Routes = (app, { service, stream, tuning }) => {
       schema: {
         summary: 'Live stream',
         description:
-          'Server-Sent Events: hello, state, event, beat. After a loss, send the last id as ' +
+          'Server-Sent Events: hello, state, event, alarms, beat. After a loss, send the last id as ' +
           'Last-Event-ID (or last_event_id); hello then says "resumed", or "gap" where events ' +
           'were missed that are no longer kept.',
         tags: ['live'],

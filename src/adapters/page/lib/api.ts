@@ -41,11 +41,18 @@ export class Api {
     this.ask<Dispatch>(`api/units/${encodeURIComponent(unit)}/hours?power_MW=${power_MW}`);
   standing = async () => (await this.ask<{ standing: Standing[] }>('api/alarms')).standing;
 
-  history(unit: string, from: Date, to: Date, points: number): Promise<History> {
+  history(
+    unit: string,
+    from: Date,
+    to: Date,
+    points: number,
+    series: readonly string[],
+  ): Promise<History> {
     const query = new URLSearchParams({
       from: from.toISOString(),
       to: to.toISOString(),
       points: String(points),
+      series: series.join(','),
     });
     return this.ask(`api/units/${encodeURIComponent(unit)}/history?${query}`);
   }

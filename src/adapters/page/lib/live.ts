@@ -4,8 +4,8 @@ export interface LiveHandlers {
   /** Opened, with the server's greeting. */
   hello(hello: Hello): void;
   state(state: StreamState): void;
-  /** An alarm or alert was raised or returned. */
-  event(): void;
+  /** An alarm or alert was raised, returned or acknowledged. */
+  alarms(): void;
   beat(beat: Beat): void;
   lost(): void;
 }
@@ -64,7 +64,8 @@ export class LiveConnection {
       this.handlers.hello(hello);
     });
     on('state', (state: StreamState) => this.handlers.state(state));
-    on('event', () => this.handlers.event());
+    on('event', () => this.handlers.alarms());
+    on('alarms', () => this.handlers.alarms());
     on('beat', (beat: Beat) => this.handlers.beat(beat));
     source.onerror = () => {
       if (source === this.source) this.lose();

@@ -1,12 +1,14 @@
 import uPlot from 'uplot';
 import { AnswerError, type Api } from '../lib/api.js';
 import { byId, choices, h, setText } from '../lib/dom.js';
-import { dateClock } from '../lib/format.js';
+import { dateClock, hoursText, percent, power } from '../lib/format.js';
 import type { PageModel } from '../lib/model.js';
-import type { History } from '../lib/wire.js';
-import { type ChartKind, chartOptions, hoursSeries, seriesValues } from './chart.js';
+import { chartColumns, hoursColumns } from '../lib/series.js';
+import type { History, UnitDefinition } from '../lib/wire.js';
+import { type ChartKind, chartOptions } from './chart.js';
 
 const SPANS_H = { '6': '6 h', '24': '24 h', '168': '7 days' } as const;
+const CHARGE = 'state_of_charge';
 const POINTS = 400;
 const AT_MOST_EVERY_MS = 5_000;
 const AT_LEAST_EVERY_MS = 60_000;
@@ -34,57 +36,58 @@ export function historyPanel(model: PageModel, api: Api): () => void {
     fault,
   );
 
-  const charts = new Map<ChartKind, uPlot>();
+  const charts: uPlot[] = [];
   let history: History | null = null;
+  /** Which hours the history carries. */
+  let hours: ReturnType<typeof hoursColumns> = null;
   let shownFor = '';
   let asked_ms = Number.NEGATIVE_INFINITY;
   let asking = false;
 
   function draw(): void {
-    for (const chart of charts.values()) chart.destroy();
-    charts.clear();
+    for (const chart of charts) chart.destroy();
+    charts.length = 0;
     holder.replaceChildren();
     if (history === null || holder.clientWidth === 0) return;
-    const names = hoursSeries(history.series, model.unit?.definition ?? null);
-    for (const kind of ['charge', 'hours'] as const) {
-      if (kind === 'hours' && names === null) continue;
-      const title = kind === 'charge' ? 'State of charge, %' : hoursTitle(names!.power_MW);
-      const box = h('div', {
-        class: 'chart',
-        role: 'img',
-        'data-chart': kind,
-        'aria-label': title,
-      });
-      holder.append(h('p', { class: 'when' }, title), box);
-      const columns = kind === 'charge' ? ['state_of_charge'] : names!.columns;
-      const scale = kind === 'charge' ? 100 : 1;
-      const options = chartOptions(kind, box.clientWidth, tell);
-      charts.set(kind, new uPlot(options, seriesValues(history, columns, scale), box));
-    }
+    addChart('charge', 'State of charge, %', [CHARGE], 100);
+    if (hours === null) return;
+    const title = `Hours left at ${power(hours.power_MW)} MW electric: p50 dashed, p90 to p10 shaded`;
+    addChart('hours', title, hours.columns, 1);
+  }
+
+  function addChart(kind: ChartKind, title: string, columns: readonly string[], scale: number) {
+    const box = h('div', { class: 'chart', role: 'img', 'data-chart': kind, 'aria-label': title });
+    holder.append(h('p', { class: 'when' }, title), box);
+    const data = chartColumns(history!, columns, scale) as uPlot.AlignedData;
+    charts.push(new uPlot(chartOptions(kind, box.clientWidth, tell), data, box));
   }
 
   /** The figures under the cursor, in words below the charts. */
   function tell(chart: uPlot): void {
     const index = chart.cursor.idx;
-    const row = index === null || index === undefined ? undefined : history?.rows[index];
-    if (row === undefined || history === null) return;
-    const charge = row.state_of_charge;
-    const names = hoursSeries(history.series, model.unit?.definition ?? null);
-    const middle = names === null ? null : row[names.columns[1]!];
+    if (index === null || index === undefined || history === null) return;
+    const time = chart.data[0][index];
+    const row = history.rows.find((one) => Date.parse(String(one.time)) / 1000 === time);
+    if (row === undefined) return;
+    const charge = row[CHARGE];
+    const middle = hours === null ? null : row[hours.columns[1]];
     const parts = [dateClock(String(row.time))];
-    if (typeof charge === 'number') parts.push(`${(charge * 100).toFixed(1)} % charged`);
-    if (typeof middle === 'number') parts.push(`p50 ${middle.toFixed(2)} h`);
+    if (typeof charge === 'number') parts.push(`${percent(charge)} % charged`);
+    if (typeof middle === 'number') parts.push(`p50 ${hoursText(middle)}`);
     setText(now, parts.join(' · '));
   }
 
-  async function load(unit: string, to: Date): Promise<void> {
+  async function load(definition: UnitDefinition, to: Date): Promise<void> {
+    const { unit } = definition;
+    const wanted = hoursColumns(definition);
     asking = true;
     asked_ms = performance.now();
     const from = new Date(to.getTime() - span_h * 3_600_000);
     try {
-      const found = await api.history(unit, from, to, POINTS);
+      const found = await api.history(unit, from, to, POINTS, [CHARGE, ...(wanted?.columns ?? [])]);
       if (unit !== model.selected) return;
       history = found;
+      hours = wanted;
       setText(fault, found.rows.length === 0 ? 'Nothing is stored for this span yet.' : '');
       draw();
     } catch (error) {
@@ -106,7 +109,15 @@ export function historyPanel(model: PageModel, api: Api): () => void {
   return () => {
     const entry = model.unit;
     const time = entry?.state?.estimate?.time;
-    if (entry === null || time === undefined || asking || model.connection !== 'live') return;
+    const definition = entry?.definition ?? null;
+    if (
+      entry === null ||
+      definition === null ||
+      time === undefined ||
+      asking ||
+      model.connection !== 'live'
+    )
+      return;
     const key = `${entry.unit} ${span_h}`;
     const to = Date.parse(time);
     const since = performance.now() - asked_ms;
@@ -115,10 +126,6 @@ export function historyPanel(model: PageModel, api: Api): () => void {
     const moved = to - newest >= (span_h * 3_600_000) / POINTS || since > AT_LEAST_EVERY_MS;
     if (key === shownFor && (!moved || since < AT_MOST_EVERY_MS)) return;
     shownFor = key;
-    void load(entry.unit, new Date(to));
+    void load(definition, new Date(to));
   };
-}
-
-function hoursTitle(power_MW: number | null): string {
-  return `Hours left${power_MW === null ? '' : ` at ${power_MW} MW electric`}: p50 dashed, p90 to p10 shaded`;
 }
