@@ -59,13 +59,7 @@ export class Questions {
 
   private start(configPath: string): Worker {
     if (this.worker) return this.worker;
-    // From the sources, as in development, the worker needs the loader for TypeScript as well.
-    const fromSources = import.meta.url.endsWith('.ts');
-    const file = new URL(fromSources ? '../worker.ts' : '../worker.js', import.meta.url);
-    const worker = new Worker(file, {
-      workerData: { configPath },
-      ...(fromSources ? { execArgv: ['--import', 'tsx'] } : {}),
-    });
+    const worker = startWorker({ configPath });
     worker.on('message', (reply: HoursReply) => this.settle(reply));
     worker.on('error', (error) => this.lost(worker, error));
     worker.on('exit', (code) => this.lost(worker, new Error(`the worker ended with code ${code}`)));
@@ -91,4 +85,14 @@ export class Questions {
     for (const { reject } of this.waiting.values()) reject(reason);
     this.waiting.clear();
   }
+}
+
+/** From the sources, as in development, the worker needs the loader for TypeScript first. */
+function startWorker(workerData: object): Worker {
+  if (!import.meta.url.endsWith('.ts')) {
+    return new Worker(new URL('../worker.js', import.meta.url), { workerData });
+  }
+  const { href } = new URL('../worker.ts', import.meta.url);
+  const load = `import('tsx/esm/api').then(({ register }) => { register(); return import('${href}'); })`;
+  return new Worker(load, { eval: true, workerData });
 }

@@ -131,17 +131,16 @@ export class InfluxForwarder {
   }
 
   /** @returns the points that were written; the others were refused for good */
-  private async write(influx: InfluxDB, points: IPoint[]): Promise<IPoint[]> {
+  private async write(influx: InfluxDB, points: IPoint[], mayCreate = true): Promise<IPoint[]> {
     if (points.length === 0) return points;
     try {
       await influx.writePoints(points, { precision: 'ms' });
       return points;
     } catch (thrown) {
       const status = statusOf(thrown);
-      if (status === 404) {
+      if (status === 404 && mayCreate) {
         await influx.createDatabase(this.options.config.database);
-        await influx.writePoints(points, { precision: 'ms' });
-        return points;
+        return this.write(influx, points, false);
       }
       if (status !== 400) throw thrown;
       return this.halve(influx, points, reasonOf(thrown));

@@ -19,7 +19,8 @@ import type { OutboxItem } from './outbox.js';
  * - `rockhour_sensor`, tags `unit`, `store`, `sensor`, only while rejected: verdict (string)
  * - `rockhour_dispatch`, tags `unit`, `power_MW`: hours_p90, hours_p50, hours_p10,
  *   energy_p90_MWh_el, energy_p50_MWh_el, energy_p10_MWh_el; ends_by (string)
- * - `rockhour_event`, tags `unit`, `kind`, `subject`, `transition`: value, limit; class, priority,
+ * - `rockhour_event`, tags `unit`, `kind`, `subject`, `transition`: value, threshold (the limit;
+ *   `limit` is a word of its query language); class, priority,
  *   message (string)
  */
 export function pointsOf(item: OutboxItem): IPoint[] {
@@ -32,7 +33,7 @@ export function pointsOf(item: OutboxItem): IPoint[] {
   if (item.kind === 'estimate') return estimatePoints(item.content, point);
   if (item.kind === 'event') {
     const { unit, kind, subject, transition, value, limit, priority, message } = item.content;
-    const fields = { value, limit, class: item.content.class, priority, message };
+    const fields = { value, threshold: limit, class: item.content.class, priority, message };
     return point('rockhour_event', { unit, kind, subject, transition }, fields);
   }
   return item.content.flatMap(({ power_MW, hours, energy_MWh_el: energy, ends_by }) =>

@@ -54,9 +54,9 @@ function thinEstimates(
   const wanted = now_ms - store.thin_after_days * DAY_MS;
   const end = Math.floor(wanted / width_ms) * width_ms;
   const reached = database.prepare("SELECT value FROM cursors WHERE name = 'thinned'").pluck();
-  const oldest = database.prepare('SELECT min(time) FROM estimates').pluck().get() as number | null;
-  if (oldest === null) return 0;
-  const from = Math.max((reached.get() as number | undefined) ?? oldest, oldest);
+  const oldest = database.prepare('SELECT min(time) FROM estimates').pluck();
+  const from = (reached.get() as number | undefined) ?? (oldest.get() as number | null);
+  if (from === null) return 0;
   const start = Math.floor(from / width_ms) * width_ms;
   const to = Math.min(end, start + Math.max(width_ms, Math.floor(STEP_MS / width_ms) * width_ms));
   if (to <= start) return 0;
@@ -69,7 +69,7 @@ function thinEstimates(
     .prepare(
       `DELETE FROM estimates WHERE time >= @start AND time < @to AND seq NOT IN (
          SELECT seq FROM (SELECT seq, max(time) FROM estimates WHERE time >= @start AND time < @to
-           GROUP BY unit, (time - @start) / @width))`,
+           GROUP BY unit, CAST((time - @start) / @width AS INTEGER)))`,
     )
     .run(span);
   database.prepare("INSERT OR REPLACE INTO cursors (name, value) VALUES ('thinned', ?)").run(to);

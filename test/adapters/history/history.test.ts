@@ -1,0 +1,275 @@
+import { join } from 'node:path';
+import { describe, expect, it } from 'vitest';
+import { History } from '../../../src/adapters/history/history.js';
+import type { StoreConfig } from '../../../src/config/site.js';
+import type { UnitDefinition } from '../../../src/core/definitions.js';
+import { temporaryFolder } from '../../support/folders.js';
+import { estimate, event, NOTHING, unit } from './unit.js';
+
+const T = Date.UTC(2026, 0, 1);
+const DAY = 86_400_000;
+
+const STORE: StoreConfig = {
+  folder: '',
+  keep_readings_days: 10,
+  keep_estimates_days: 100,
+  thin_after_days: 5,
+  thin_to_s: 600,
+  checkpoint_every_s: 600,
+};
+
+function opened(folder = temporaryFolder('history'), store = STORE): History {
+  const history = new History(join(folder, 'history.sqlite'), store);
+  history.start();
+  return history;
+}
+
+function fill(history: History, count: number, every_ms: number, from = T): void {
+  history.write(() => {
+    for (let i = 0; i < count; i++) {
+      history.estimates.add(unit, estimate(from + i * every_ms, i / count), NOTHING);
+    }
+  });
+}
+
+describe('estimates', () => {
+  it('come back as they were, and a time once written stays as it was', () => {
+    const folder = temporaryFolder('history');
+    const history = opened(folder);
+    const answer = {
+      power_MW: 1.8,
+      hours: { p90: 1, p50: 2, p10: 3 },
+      energy_MWh_el: { p90: 1.8, p50: 3.6, p10: 5.4 },
+      ends_by: 'hot_outlet' as const,
+    };
+    const first = estimate(T, 0.5, { dispatch: [answer] });
+    expect(history.estimates.add(unit, first, NOTHING)).toBe(true);
+    expect(history.estimates.add(unit, estimate(T, 0.6), NOTHING)).toBe(false);
+    expect(history.estimates.add(unit, estimate(T + 30_000, 0.7), NOTHING)).toBe(true);
+    history.stop();
+    const again = opened(folder);
+    expect(again.estimates.between('u', T, T, 10)).toEqual([first]);
+    expect(again.estimates.latest('u')?.state_of_charge).toBe(0.7);
+    expect(again.estimates.latestDispatch('u')).toEqual({ time: first.time, answers: [answer] });
+    expect(again.estimates.latest('other')).toBeNull();
+    again.stop();
+  });
+
+  it('give series with their values, words for words and null for nothing', () => {
+    const history = opened();
+    const measured = { flow_kg_s: -12.5, power_MW_el: null };
+    history.estimates.add(unit, estimate(T, 0.25, { mode: 'discharge' }), measured);
+    const [point, ...more] = history.estimates.series('u', T, T + 1000, 10);
+    expect(more).toEqual([]);
+    expect(point).toMatchObject({
+      time: '2026-01-01T00:00:00.000Z',
+      state_of_charge: 0.25,
+      mode: 'discharge',
+      quality: 'good',
+      flow_kg_s: -12.5,
+      power_MW_el: null,
+      'hot.front_m': 3,
+      'hot.width_m': null,
+      'hot.outlet_degC': 300 - 273.15,
+      'hot.axis.width_m': 0.4,
+      'hot.spread_ratio.max': 1.25,
+      'hours_p50_at_1.8_MW': null,
+    });
+    const { time: _, ...series } = point!;
+    expect(Object.keys(series).sort()).toEqual(history.estimates.names(unit).sort());
+    history.stop();
+  });
+
+  it('are thinned to the mean of equal stretches, with extremes where they matter', () => {
+    const history = opened();
+    fill(history, 1000, 30_000);
+    const end = T + 1000 * 30_000;
+    const points = history.estimates.series('u', T, end, 10);
+    expect(points).toHaveLength(10);
+    points.forEach((point, i) => {
+      // Rows 100 i to 100 i + 99 of values k/1000: their mean is (100 i + 49.5)/1000.
+      expect(point.state_of_charge).toBeCloseTo((100 * i + 49.5) / 1000, 12);
+      expect(point['state_of_charge.min']).toBe(i / 10);
+      expect(point['state_of_charge.max']).toBe((100 * i + 99) / 1000);
+    });
+    expect(history.estimates.series('u', T, T + 299_999, 10)).toHaveLength(10);
+    expect(history.estimates.series('u', T - DAY, T - 1, 10)).toEqual([]);
+    history.stop();
+  });
+
+  it('keep their series when strings are added to the configuration later', () => {
+    const wider = structuredClone(unit) as unknown as { stores: { strings: object[] }[] };
+    wider.stores[0]!.strings.unshift({ id: 'wall' });
+    const changed = wider as unknown as UnitDefinition;
+    const path = temporaryFolder('history');
+    const before = opened(path);
+    before.estimates.add(unit, estimate(T, 0.25), NOTHING);
+    before.stop();
+    const after = opened(path);
+    after.estimates.add(changed, estimate(T + 30_000, 0.5), NOTHING);
+    const points = after.estimates.series('u', T, T + 60_000, 10);
+    expect(points.map((point) => point['hot.axis.width_m'])).toEqual([0.4, 0.4]);
+    expect(points.map((point) => point['hot.wall.width_m'])).toEqual([undefined, null]);
+    after.stop();
+  });
+
+  it('keep one profile per ten minutes, and the newest where asked', () => {
+    const history = opened();
+    const profile = (i: number) => ({
+      time: new Date(T + i * 30_000).toISOString(),
+      unit: 'u',
+      stores: {},
+    });
+    for (let i = 0; i < 50; i++) history.estimates.addProfile(profile(i));
+    expect(history.estimates.latestProfile('u')?.time).toBe(profile(40).time);
+    history.estimates.addProfile(profile(49), true);
+    expect(history.estimates.latestProfile('u')?.time).toBe(profile(49).time);
+    history.stop();
+  });
+});
+
+describe('retention', () => {
+  it('keeps the last estimate per stretch of old days and all of the young ones', () => {
+    const history = opened();
+    fill(history, 2 * 2880, 30_000);
+    const now = T + 2 * DAY;
+    history.retain(now + 5 * DAY, Number.POSITIVE_INFINITY);
+    history.retain(now + 5 * DAY, Number.POSITIVE_INFINITY);
+    history.retain(now + 5 * DAY, Number.POSITIVE_INFINITY);
+    const left = history.estimates.between('u', T, now, 1e6).map((one) => Date.parse(one.time) - T);
+    expect(left).toEqual(Array.from({ length: 288 }, (_, i) => (i + 1) * 600_000 - 30_000));
+    history.stop();
+  });
+
+  it('does not thin the young', () => {
+    const history = opened();
+    fill(history, 100, 30_000);
+    history.retain(T + 5 * DAY, Number.POSITIVE_INFINITY);
+    expect(history.estimates.between('u', T, T + DAY, 1e6)).toHaveLength(100);
+    history.stop();
+  });
+
+  it('does not thin what is due to the database, but does not keep it for ever, and counts that', () => {
+    const history = opened();
+    fill(history, 100, 30_000);
+    history.outbox.moveTo(50);
+    history.retain(T + 50 * DAY, history.outbox.cursor);
+    expect(history.estimates.between('u', T, T + DAY, 1e6)).toHaveLength(100);
+    const counts = history.retain(T + 101 * DAY, history.outbox.cursor);
+    expect(counts).toMatchObject({ estimates: 100, not_forwarded: 50 });
+    history.stop();
+  });
+
+  it('does not use a number again after all was deleted and forwarded', () => {
+    const folder = temporaryFolder('history');
+    const history = opened(folder);
+    fill(history, 10, 30_000);
+    history.outbox.moveTo(10);
+    history.retain(T + 200 * DAY, 10);
+    history.stop();
+    const again = opened(folder);
+    fill(again, 1, 30_000, T + 200 * DAY);
+    expect(again.outbox.read(10)).toMatchObject([{ seq: 11 }]);
+    again.stop();
+  });
+});
+
+describe('events', () => {
+  it('stand until they have returned and were acknowledged, in either order', () => {
+    const history = opened();
+    const { events } = history;
+    expect(events.add(event(T, 'raised'))).toBe(true);
+    expect(events.standing()).toMatchObject([{ state: 'unacknowledged', acknowledged_by: null }]);
+    expect(events.acknowledge('u/front_spread/hot', 'mara', T + 1)).toBe(true);
+    expect(events.standing()).toMatchObject([{ state: 'acknowledged', acknowledged_by: 'mara' }]);
+    events.add(event(T + 2, 'returned'));
+    expect(events.standing()).toEqual([]);
+    events.add(event(T + 3, 'raised'));
+    events.add(event(T + 4, 'returned'));
+    expect(events.standing()).toMatchObject([{ state: 'returned_unacknowledged' }]);
+    expect(events.standing('other')).toEqual([]);
+    expect(events.acknowledge('u/front_spread/hot', 'mara', T + 5)).toBe(true);
+    expect(events.standing()).toEqual([]);
+    expect(events.acknowledge('u/front_spread/hot', 'mara', T + 6)).toBe(false);
+    history.stop();
+  });
+
+  it('raised again after a return need a new acknowledgement', () => {
+    const history = opened();
+    const { events } = history;
+    events.add(event(T, 'raised'));
+    events.acknowledge('u/front_spread/hot', 'mara', T);
+    events.add(event(T + 1, 'returned'));
+    events.add(event(T + 2, 'raised'));
+    expect(events.standing()).toMatchObject([{ state: 'unacknowledged', acknowledged_by: null }]);
+    history.stop();
+  });
+
+  it('known already, as in a replay after a restart, change nothing that stands', () => {
+    const history = opened();
+    const { events } = history;
+    events.add(event(T, 'raised'));
+    events.acknowledge('u/front_spread/hot', 'mara', T);
+    expect(events.add(event(T, 'raised'))).toBe(false);
+    expect(events.standing()).toMatchObject([{ state: 'acknowledged' }]);
+    expect(events.between(undefined, T, T, 10)).toHaveLength(1);
+    history.stop();
+  });
+
+  it('are listed newest first, of one unit or all, no more than asked for', () => {
+    const history = opened();
+    for (let i = 0; i < 5; i++) history.events.add(event(T + i, i % 2 ? 'returned' : 'raised'));
+    const times = history.events.between('u', T, T + 3, 2).map((one) => Date.parse(one.time) - T);
+    expect(times).toEqual([3, 2]);
+    expect(history.events.between('other', T, T + 9, 9)).toEqual([]);
+    history.stop();
+  });
+});
+
+describe('checkpoints', () => {
+  it('come back newest first with all that they hold, and only the last three are kept', () => {
+    const history = opened();
+    for (let i = 1; i <= 5; i++) {
+      const image = { state: new Float64Array([i, Number.NaN]), open: new Map([[i, 'x']]) };
+      history.checkpoints.add(unit, { time_ms: T + i, journal_seq: i * 10, image });
+    }
+    const list = history.checkpoints.list(unit);
+    expect(list.map((one) => one.journal_seq)).toEqual([50, 40, 30]);
+    expect(list[0]!.image).toEqual({
+      state: new Float64Array([5, Number.NaN]),
+      open: new Map([[5, 'x']]),
+    });
+    expect(history.checkpoints.coveredSeq(['u'])).toBe(30);
+    expect(history.checkpoints.coveredSeq(['u', 'new'])).toBe(0);
+    history.stop();
+  });
+
+  it('of another definition of the unit are not given', () => {
+    const history = opened();
+    history.checkpoints.add(unit, { time_ms: T, journal_seq: 1, image: 1 });
+    const changed = { ...unit, hours_at_W: [2e6] };
+    expect(history.checkpoints.list(changed)).toEqual([]);
+    expect(history.checkpoints.hasAny('u')).toBe(true);
+    history.stop();
+  });
+});
+
+describe('the outbox', () => {
+  it('gives estimates, answers and events in the order in which they were made, from its cursor on', () => {
+    const folder = temporaryFolder('history');
+    const history = opened(folder);
+    history.estimates.add(unit, estimate(T, 0.1), NOTHING);
+    history.events.add(event(T, 'raised'));
+    history.estimates.add(unit, estimate(T + 1, 0.2, { dispatch: [] }), NOTHING);
+    const kinds = () => history.outbox.read(10).map((item) => `${item.seq} ${item.kind}`);
+    expect(kinds()).toEqual(['1 estimate', '2 event', '3 estimate', '4 dispatch']);
+    expect(history.outbox.read(2).map((item) => item.seq)).toEqual([1, 2]);
+    history.outbox.moveTo(2);
+    expect(kinds()).toEqual(['3 estimate', '4 dispatch']);
+    expect(history.outbox.backlog).toBe(2);
+    history.stop();
+    const again = opened(folder);
+    expect(again.outbox.cursor).toBe(2);
+    again.stop();
+  });
+});
