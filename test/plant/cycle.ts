@@ -37,11 +37,15 @@ function after(T: number, ratio: number, exponent: number): number {
  * discharging behind each.
  */
 export class GasCycle {
+  /** Beyond this the loop's loss law means nothing [kg/s]. */
+  readonly flowEnd_kg_s: number;
   constructor(
     private readonly machine: GasCycleGeometry,
     private readonly draw: MachineDraw,
     private readonly ratedFlow_kg_s: number,
-  ) {}
+  ) {
+    this.flowEnd_kg_s = 4 * ratedFlow_kg_s;
+  }
 
   point(
     charging: boolean,
@@ -92,6 +96,7 @@ export class GasCycle {
 
 /** Heater and engine at a single store; the table of efficiency is read by straight lines. */
 export class HeaterCycle {
+  readonly flowEnd_kg_s = Number.POSITIVE_INFINITY;
   constructor(
     private readonly machine: HeaterGeometry,
     private readonly heatCapacity: (T: number) => number,
@@ -154,7 +159,7 @@ export function flowForPower(
     a = b;
     fa = fb;
     b = Math.min(Math.max(b - fb / slope, a / 5), a * 5);
-    if (!(b > 1e-9) || b > 1e6) return Number.NaN;
+    if (!(b > 1e-9 && b < cycle.flowEnd_kg_s)) return Number.NaN;
   }
   return Number.NaN;
 }
