@@ -1,9 +1,9 @@
-import { readFileSync } from 'node:fs';
 import { Command, CommanderError } from 'commander';
 import { register as registerCheck } from './commands/check.js';
 import { closingHelp } from './commands/help.js';
 import { register as registerHours } from './commands/hours.js';
 import { register as registerReplay } from './commands/replay.js';
+import { packageVersion, register as registerRun } from './commands/run.js';
 import { EXIT_CODES, exitCodeOf, explain } from './errors.js';
 
 function fail(thrown: unknown): void {
@@ -12,20 +12,15 @@ function fail(thrown: unknown): void {
   process.exitCode = exitCodeOf(thrown);
 }
 
-function version(): string {
-  // Beside both src and dist.
-  const text = readFileSync(new URL('../package.json', import.meta.url), 'utf8');
-  return (JSON.parse(text) as { version: string }).version;
-}
-
 function createProgram(): Command {
   const program = new Command('rockhour')
     .description('Front positions, stored energy and remaining hours of packed-bed thermal stores')
-    .version(version())
+    .version(packageVersion())
     .addHelpText('after', closingHelp())
     .showSuggestionAfterError()
     .exitOverride();
-  for (const register of [registerReplay, registerHours, registerCheck]) register(program);
+  for (const register of [registerRun, registerReplay, registerHours, registerCheck])
+    register(program);
   return program;
 }
 
