@@ -24,7 +24,7 @@ export function describe(
   const stores: Record<string, StoreEstimate> = {};
   const spread: Record<string, Spread> = {};
   model.stores.forEach((store, s) => {
-    const { fronts, views } = taken.stores[s] as TakenStore;
+    const { energy, fronts, views } = taken.stores[s] as TakenStore;
     const storeState = state.stores[s] as StoreState;
     const ratio = storeSpread(store, storeState, state.views[s] as StoreViews, fronts.fronts);
     spread[store.store.id] = ratio;
@@ -33,6 +33,7 @@ export function describe(
       spread_ratio: ratio?.ratio ?? null,
       flowing,
       fronts,
+      energy,
     });
   });
   const input = hoursInput(model, state, scan, taken.conditions.ambient_K);
@@ -43,7 +44,14 @@ export function describe(
     revision: 0,
     mode: taken.conditions.mode,
     quality: qualityOf(model, state, scan, taken),
-    state_of_charge: stateOfCharge(model, state, scan, input, taken.modeChanged),
+    state_of_charge: stateOfCharge(
+      model,
+      state,
+      scan,
+      input,
+      Math.min(...taken.stores.map((store) => store.energy.soc)),
+      taken.modeChanged,
+    ),
     stores,
   };
   if (ask.hours_at_W.length > 0) {

@@ -4,6 +4,7 @@ import type { Scan } from './scan/scan.js';
 import { type Conditions, readConditions } from './track/conditions.js';
 import { driveOf, storeOutlets, unknownTravel } from './track/drive.js';
 import type { FrontViewStep } from './track/frontView.js';
+import { type StoreEnergy, storeEnergy } from './track/storeEnergy.js';
 import { storeFronts } from './track/storeEstimate.js';
 import { type StoreState, type StoreStep, stepStore } from './track/storeTracker.js';
 import { type StoreViews, stepViews } from './track/storeViews.js';
@@ -22,6 +23,7 @@ export interface Taken {
 
 export interface TakenStore {
   readonly step: StoreStep;
+  readonly energy: StoreEnergy;
   readonly fronts: { fronts: FrontEstimate[]; reason: FrontReason | null };
   readonly views: readonly FrontViewStep[];
 }
@@ -55,7 +57,8 @@ export function takeIn(model: UnitModel, state: UnitState, scan: Scan): Taken {
       scan.time_ms,
       state.unknownTravel_m[s] as number,
     );
-    const fronts = storeFronts(store, storeState);
+    const energy = storeEnergy(store, storeState);
+    const fronts = storeFronts(store, storeState, energy);
     const unknown = state.unknownTravel_m[s] as number;
     if (step === 'updated' || step === 'reacquired') state.unknownTravel_m[s] = 0;
     const views = stepViews(
@@ -67,7 +70,7 @@ export function takeIn(model: UnitModel, state: UnitState, scan: Scan): Taken {
       fronts.fronts,
       unknown,
     );
-    return { step, fronts, views };
+    return { step, energy, fronts, views };
   });
   const modeChanged = conditions.mode !== state.mode;
   learnMachine(model, state, conditions, dt_s, modeChanged, outlets);

@@ -2,7 +2,6 @@ import type { Direction } from '../definitions.js';
 import type { StoreTemperatures } from '../machine/machine.js';
 import type { Scan } from '../scan/scan.js';
 import type { Conditions } from '../track/conditions.js';
-import { storeEnergy } from '../track/storeEnergy.js';
 import { meanFactor } from '../track/storeEstimate.js';
 import type { StoreState } from '../track/storeTracker.js';
 import type { UnitModel } from '../unitModel.js';
@@ -85,18 +84,18 @@ export function hoursInput(
  * Dispatchable over rated energy at rated power. Rolled out every ten minutes and on a change of
  * mode; between, it moves with the store that holds less, by what a
  * full unit delivers.
+ *
+ * @param least state of charge of the store that holds less
  */
 export function stateOfCharge(
   model: UnitModel,
   state: UnitState,
   scan: Scan,
   input: HoursInput,
+  least: number,
   modeChanged: boolean,
 ): number {
   const { unit } = model;
-  const least = Math.min(
-    ...model.stores.map((store, s) => storeEnergy(store, state.stores[s] as StoreState).soc),
-  );
   const last = state.charge;
   const due =
     last === null ||

@@ -1,6 +1,6 @@
 import type { FrontFit } from './frontViewFit.js';
 import { normalDensity, normalQuantile } from './frontViewNormal.js';
-import type { Four, FrontData, FrontPrior } from './frontViewSolve.js';
+import type { FrontData, FrontPrior, Shape } from './frontViewSolve.js';
 
 /** A reading between these shares of the step stands in the steep part of an erf front. */
 const STEEP_SHARE = 0.03;
@@ -14,7 +14,7 @@ const CLEAR = 3;
  * first and the last do not count: with nothing beyond them, a plateau of their own height would
  * explain them as well.
  */
-export function steepReadings(data: FrontData, [, , A, B]: Four): number {
+export function steepReadings(data: FrontData, [, , A, B]: Shape): number {
   let count = 0;
   for (let i = 1; i + 1 < data.x_m.length; i++) if (isSteep(data, i, A, B)) count++;
   return count;

@@ -1,15 +1,8 @@
 import { requireNotNegative, requirePositive } from '../misuse.js';
 import { findFronts } from './fronts.js';
 import { bracketFront, steepReadings } from './frontViewBracket.js';
-import { normalDensity, normalQuantile } from './frontViewNormal.js';
-import {
-  type Four,
-  type FrontData,
-  type FrontPrior,
-  type FrontSolution,
-  solveFront,
-  symmetrise,
-} from './frontViewSolve.js';
+import { publishFront } from './frontViewPublish.js';
+import { type FrontData, type FrontPrior, type Shape, solveFront } from './frontViewSolve.js';
 
 /** One thermocouple of a string that gave a value this scan. */
 export interface FrontReading {
@@ -46,7 +39,10 @@ export interface FrontFit {
   readonly seen: true;
   /** theta = 0.5 of the store's references on the fitted shape [m]. */
   readonly position_m: number;
-  /** One sigma of the fitted erf front [m]; null where fewer than two readings stand in it. */
+  /**
+   * Half the distance between theta = 0.16 and 0.84 of the references on the fitted shape [m]; null
+   * where it does not reach them, or fewer than two readings stand in it.
+   */
   readonly width_m: number | null;
   readonly hot_plateau_K: number;
   readonly cold_plateau_K: number;
@@ -57,7 +53,7 @@ export interface FrontFit {
   readonly covariance: Float64Array;
   /** The part of it that is new with every scan; the rest stays while the front stays. */
   readonly white: Float64Array;
-  /** Sum of squared normalised residuals over degrees of freedom; near 1 for an erf front. */
+  /** Sum of squared normalised residuals over degrees of freedom; near 1 where the shape fits. */
   readonly misfit: number;
   /** Readings left out because the others agree much better without them: 0 or 1. */
   readonly left_out: 0 | 1;
@@ -70,28 +66,28 @@ export interface NoFrontFit {
 
 /** Sigma of the prior on each plateau, as a share of the range between the references. */
 const PLATEAU_PRIOR = 0.1;
+/** Sigma of the prior on the skew: at 0.3 one flank is 2.4 times as long as the other. */
+const SKEW_PRIOR = 0.3;
 /** A fit whose squared residuals are this many times too large is tried without its worst reading, */
 const BAD_MISFIT = 4;
 /** and that is taken where it makes them smaller by this factor, with at least as many left. */
 const BETTER = 4;
 const LEAST_LEFT = 6;
-/** Below this share of the fitted step from a plateau, one half of the references is no crossing. */
-const NEAR_PLATEAU = 0.02;
 
 /**
- * Fits the front of one string: T(x) = A + (B - A) Phi((x - p)/w), A the plateau at the charge
- * inlet, by weighted least squares (`solveFront`). Independent of the bed model.
+ * Fits the front of one string, by weighted least squares of an erf front that may be skewed, between
+ * plateaus of its own (`solveFront`). Independent of the bed model.
  *
- * Position: where the fitted curve passes the middle of the references, x50 = p + w u50 with
- * Phi(u50) = (T50 - A)/(B - A); inside the readings only. Width: w. Priors, weak on purpose: each
- * plateau at its reference with a tenth of the range, ln w over everything from a quarter of the
- * spacing to half the readings' reach as plus and minus one sigma. They decide only what the
- * readings leave open, such as a plateau outside the string. Where the residuals are larger than
- * their sigmas (the front is no erf) the covariance grows by chi squared over its degrees of freedom
- * (Birge 1932); where they are four times smaller without the worst reading, it is left out instead
- * (`left_out`): sensors are judged elsewhere, but one that fails now must not bend the view until
- * then. A front with fewer than two readings in its steep part has no width, and its
- * position is that of `bracketFront`.
+ * Position and width are those of the definition, on the fitted curve and by the references of the
+ * store: theta = 0.5, and half the way from 0.16 to 0.84 (`publishFront`). Priors, weak on purpose:
+ * each plateau at its reference with a tenth of the range, no skew +/- 0.3, ln w over everything from
+ * a quarter of the spacing to half the readings' reach as plus and minus one sigma. They decide only
+ * what the readings leave open, such as a plateau outside the string. Where the residuals are larger
+ * than their sigmas (the front has another shape) the covariance grows by chi squared over its
+ * degrees of freedom (Birge 1932); where they are four times smaller without the worst reading, it
+ * is left out instead (`left_out`): sensors are judged elsewhere, but one that fails now must not
+ * bend the view until then. A front with fewer than two readings in its steep part has no width, and
+ * its position is that of `bracketFront`.
  *
  * @param readings any order; missing ones as NaN
  * @param references charged and discharged temperature [K]
@@ -132,14 +128,16 @@ export function fitFront(
     charged_K,
     discharged_K,
     plateauSigma_K: PLATEAU_PRIOR * range,
+    skewSigma: SKEW_PRIOR,
     logWidth: 0.5 * Math.log(narrow * wide),
     logWidthSigma: 0.5 * Math.log(wide / narrow),
   };
-  const start: Four = [
+  const start: Shape = [
     front.position_m,
     Math.log(Math.min(wide, Math.max(narrow, front.width_m ?? narrow))),
     charged_K,
     discharged_K,
+    0,
   ];
   const solution = solveFront(data, prior, start);
   if (solution !== null && steepReadings(data, solution.parameters) >= 2) {
@@ -147,9 +145,9 @@ export function fitFront(
       const fewer = columns(sorted.filter((_, i) => i !== solution.worst));
       const better = solveFront(fewer, prior, solution.parameters);
       if (better !== null && BETTER * better.misfit < solution.misfit)
-        return publish(better, fewer, references, 1);
+        return publishFront(better, fewer, references, 1);
     }
-    return publish(solution, data, references, 0);
+    return publishFront(solution, data, references, 0);
   }
   return bracketFront(data, prior, front.position_m) ?? none('not_settled');
 }
@@ -189,62 +187,4 @@ function mergePlaces(data: FrontData): { x: Float64Array; T: Float64Array } {
     }
   }
   return { x: Float64Array.from(x), T: Float64Array.from(T) };
-}
-
-/** From the shape's parameters to what is published, with the covariance carried along. */
-function publish(
-  solution: FrontSolution,
-  data: FrontData,
-  { charged_K, discharged_K }: FrontReferences,
-  left_out: 0 | 1,
-): FrontFit | NoFrontFit {
-  const [p, logW, A, B] = solution.parameters;
-  const w = Math.exp(logW);
-  const step = B - A;
-  const share = (0.5 * (charged_K + discharged_K) - A) / step;
-  if (!(share > NEAR_PLATEAU && share < 1 - NEAR_PLATEAU)) return none('no_half_crossing');
-  const u = normalQuantile(share);
-  const position = p + w * u;
-  const last = data.x_m.length - 1;
-  if (!(position >= data.x_m[0]! && position <= data.x_m[last]!)) return none('outside_sensors');
-
-  // d share/dA = -(1 - share)/step, d share/dB = -share/step, du/dshare = 1/density(u).
-  const perShare = w / (step * normalDensity(u));
-  const inletIsHot = charged_K > discharged_K;
-  const jacobian = Float64Array.of(
-    ...[1, w * u, -(1 - share) * perShare, -share * perShare],
-    ...[0, w, 0, 0],
-    ...(inletIsHot ? [0, 0, 1, 0] : [0, 0, 0, 1]),
-    ...(inletIsHot ? [0, 0, 0, 1] : [0, 0, 1, 0]),
-  );
-  const inflation = Math.max(1, solution.misfit);
-  return {
-    seen: true,
-    position_m: position,
-    width_m: w,
-    hot_plateau_K: inletIsHot ? A : B,
-    cold_plateau_K: inletIsHot ? B : A,
-    covariance: carry(jacobian, solution.covariance, inflation),
-    white: carry(jacobian, solution.white, 1),
-    misfit: solution.misfit,
-    left_out,
-  };
-}
-
-/** factor M C M' for 4 x 4 row-major matrices, exactly symmetric. */
-function carry(m: Float64Array, c: Float64Array, factor: number): Float64Array {
-  const out = new Float64Array(16);
-  for (let a = 0; a < 4; a++) {
-    for (let b = 0; b < 4; b++) {
-      let sum = 0;
-      for (let k = 0; k < 4; k++) {
-        const left = m[4 * a + k]!;
-        if (left === 0) continue;
-        for (let l = 0; l < 4; l++) sum += left * c[4 * k + l]! * m[4 * b + l]!;
-      }
-      out[4 * a + b] = factor * sum;
-    }
-  }
-  symmetrise(out);
-  return out;
 }

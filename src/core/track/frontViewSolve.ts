@@ -12,21 +12,23 @@ export interface FrontData {
   readonly place_m: Float64Array;
 }
 
-/** Independent normal priors: plateaus [K] and ln(width/m). */
+/** Independent normal priors: ln(width/m), plateaus [K], skew. */
 export interface FrontPrior {
+  readonly logWidth: number;
+  readonly logWidthSigma: number;
   readonly charged_K: number;
   readonly discharged_K: number;
   readonly plateauSigma_K: number;
-  readonly logWidth: number;
-  readonly logWidthSigma: number;
+  readonly skewSigma: number;
 }
 
-/** Order of the four parameters: midpoint p [m], ln w, plateau at the charge inlet A, other B [K]. */
-export type Four = [number, number, number, number];
+/** The shape: place p [m], ln w, plateau at the charge inlet A and at the other end B [K], skew e. */
+export type Shape = [number, number, number, number, number];
+export const SHAPE_SIZE = 5;
 
 export interface FrontSolution {
-  readonly parameters: Four;
-  /** Posterior covariance, 4 x 4 row-major, exactly symmetric. */
+  readonly parameters: Shape;
+  /** Posterior covariance, 5 x 5 row-major, exactly symmetric. */
   readonly covariance: Float64Array;
   /** The part of it that is new with every scan. */
   readonly white: Float64Array;
@@ -40,11 +42,20 @@ const MOST_STEPS = 60;
 /** Done when a step would gain less than this in the sum of squares: a thousandth of a sigma. */
 const ENOUGH = 1e-6;
 
+const N = SHAPE_SIZE;
+
 /**
- * Weighted least squares of T(x) = A + (B - A) Phi((x - p)/w) with weak priors, by
- * Levenberg-Marquardt steps (Levenberg 1944, Marquardt 1963) on the analytic derivatives
+ * Weighted least squares of a front that may be skewed, with weak priors:
  *
- *   dT/dp = -(B - A) phi/w,  dT/dln w = -(B - A) phi u,  dT/dA = 1 - Phi,  dT/dB = Phi.
+ *   T(x) = A + (B - A) Phi(g),  g = sinh(asinh(u) + e),  u = (x - p)/w
+ *
+ * For e = 0 this is the erf front; the transform (Jones & Pewsey, Biometrika 96, 2009) is monotone
+ * for every e. Rock's heat capacity rises with temperature, so real fronts have one long flank: an
+ * erf alone puts the middle of such a front off by a tenth of its width. By Levenberg-Marquardt steps
+ * (Levenberg 1944, Marquardt 1963) on the analytic derivatives, with c = cosh(asinh(u) + e) and
+ * D = (B - A) phi(g):
+ *
+ *   dT/dp = -D c/(sqrt(1 + u^2) w),  dT/dln w = u w dT/dp,  dT/de = D c,  dT/dA = 1 - Phi,  dT/dB = Phi
  *
  * A reading's variance is white^2 + lasting^2 + (dT/dx place)^2; the last term needs the slope and
  * is taken from the solution before, twice. Covariance: H^-1 of the final weights; of it the white
@@ -52,7 +63,7 @@ const ENOUGH = 1e-6;
  *
  * @returns null where the steps do not settle
  */
-export function solveFront(data: FrontData, prior: FrontPrior, start: Four): FrontSolution | null {
+export function solveFront(data: FrontData, prior: FrontPrior, start: Shape): FrontSolution | null {
   const weights = new Float64Array(data.x_m.length);
   let at = start;
   // Without uncertain places the weights do not depend on the slope.
@@ -66,14 +77,15 @@ export function solveFront(data: FrontData, prior: FrontPrior, start: Four): Fro
   const system = normalEquations(data, weights, prior, at);
   const factor = cholesky(system.matrix, 0);
   if (factor === null) return null;
-  const covariance = new Float64Array(16);
-  for (let j = 0; j < 4; j++) {
-    const unit: Four = [0, 0, 0, 0];
+  const covariance = new Float64Array(N * N);
+  for (let j = 0; j < N; j++) {
+    const unit: Shape = [0, 0, 0, 0, 0];
     unit[j] = 1;
-    covariance.set(solve(factor, unit), 4 * j);
+    covariance.set(solve(factor, unit), N * j);
   }
-  symmetrise(covariance);
-  const freedom = data.x_m.length + 3 - 4;
+  symmetrise(covariance, N);
+  // One datum more for each of the four priors.
+  const freedom = data.x_m.length + 4 - N;
   return {
     parameters: at,
     covariance,
@@ -83,10 +95,11 @@ export function solveFront(data: FrontData, prior: FrontPrior, start: Four): Fro
   };
 }
 
-function weigh(data: FrontData, [p, logW, A, B]: Four, weights: Float64Array): void {
-  const w = Math.exp(logW);
+function weigh(data: FrontData, at: Shape, weights: Float64Array): void {
+  const j: Shape = [0, 0, 0, 0, 0];
   for (let i = 0; i < weights.length; i++) {
-    const slope = ((B - A) / w) * normalDensity((data.x_m[i]! - p) / w);
+    derivatives(data.x_m[i]!, at, j);
+    const slope = j[0];
     weights[i] =
       1 / (data.white_K[i]! ** 2 + data.lasting_K[i]! ** 2 + (slope * data.place_m[i]!) ** 2);
   }
@@ -96,8 +109,8 @@ function descend(
   data: FrontData,
   weights: Float64Array,
   prior: FrontPrior,
-  start: Four,
-): Four | null {
+  start: Shape,
+): Shape | null {
   let at = start;
   let system = normalEquations(data, weights, prior, at);
   let damping = 1e-3;
@@ -108,14 +121,10 @@ function descend(
       continue;
     }
     const move = solve(factor, system.gradient);
-    // A step of more than a factor e in width leaves the region where the tangent means anything.
-    const shorten = Math.min(1, 1 / Math.max(1e-300, Math.abs(move[1])));
-    const next: Four = [
-      at[0] + shorten * move[0],
-      at[1] + shorten * move[1],
-      at[2] + shorten * move[2],
-      at[3] + shorten * move[3],
-    ];
+    // A step of more than a factor e in width, or 1 in skew, leaves the region where the tangent
+    // means anything.
+    const shorten = Math.min(1, 1 / Math.max(1e-300, Math.abs(move[1]), Math.abs(move[4])));
+    const next = at.map((value, k) => value + shorten * move[k]!) as Shape;
     const trial = normalEquations(data, weights, prior, next);
     const gain = system.squares - trial.squares;
     if (gain >= 0) {
@@ -134,10 +143,10 @@ function descend(
 }
 
 interface NormalEquations {
-  /** Lower triangle of J'WJ + priors, row-major 4 x 4. */
+  /** Lower triangle of J'WJ + priors, row-major. */
   readonly matrix: Float64Array;
   /** J'W r + priors, the direction of descent. */
-  readonly gradient: Four;
+  readonly gradient: Shape;
   readonly squares: number;
 }
 
@@ -145,60 +154,68 @@ function normalEquations(
   data: FrontData,
   weights: Float64Array,
   prior: FrontPrior,
-  [p, logW, A, B]: Four,
+  at: Shape,
 ): NormalEquations {
-  const w = Math.exp(logW);
-  const h = new Float64Array(16);
-  const g: Four = [0, 0, 0, 0];
-  const j: Four = [0, 0, 0, 0];
+  const h = new Float64Array(N * N);
+  const g: Shape = [0, 0, 0, 0, 0];
+  const j: Shape = [0, 0, 0, 0, 0];
   let squares = 0;
   for (let i = 0; i < weights.length; i++) {
-    const residual = data.temperature_K[i]! - derivatives(data.x_m[i]!, p, w, A, B, j);
+    const residual = data.temperature_K[i]! - derivatives(data.x_m[i]!, at, j);
     const weight = weights[i]!;
     squares += weight * residual * residual;
-    for (let a = 0; a < 4; a++) {
+    for (let a = 0; a < N; a++) {
       const wa = weight * (j[a] as number);
       g[a] = (g[a] as number) + wa * residual;
-      for (let b = 0; b <= a; b++) h[4 * a + b] = (h[4 * a + b] as number) + wa * (j[b] as number);
+      for (let b = 0; b <= a; b++) h[N * a + b] = (h[N * a + b] as number) + wa * (j[b] as number);
     }
   }
-  const plateau = 1 / prior.plateauSigma_K ** 2;
-  const width = 1 / prior.logWidthSigma ** 2;
-  const off = [prior.logWidth - logW, prior.charged_K - A, prior.discharged_K - B];
-  [width, plateau, plateau].forEach((weight, k) => {
-    h[5 * (k + 1)]! += weight;
-    g[k + 1]! += weight * off[k]!;
-    squares += weight * off[k]! * off[k]!;
+  const means = [prior.logWidth, prior.charged_K, prior.discharged_K, 0];
+  const { logWidthSigma, plateauSigma_K, skewSigma } = prior;
+  [logWidthSigma, plateauSigma_K, plateauSigma_K, skewSigma].forEach((sigma, k) => {
+    const weight = 1 / (sigma * sigma);
+    const off = means[k]! - at[k + 1]!;
+    h[(N + 1) * (k + 1)]! += weight;
+    g[k + 1]! += weight * off;
+    squares += weight * off * off;
   });
   return { matrix: h, gradient: g, squares };
 }
 
 /** Model temperature at x; fills the derivatives. */
-function derivatives(x: number, p: number, w: number, A: number, B: number, j: Four): number {
+function derivatives(x: number, [p, logW, A, B, e]: Shape, j: Shape): number {
+  const w = Math.exp(logW);
   const u = (x - p) / w;
-  const density = normalDensity(u);
-  const share = normalDistribution(u, density);
-  const steep = (B - A) * density;
-  j[0] = -steep / w;
-  j[1] = -steep * u;
+  const root = Math.sqrt(1 + u * u);
+  const ch = Math.cosh(e);
+  const sh = Math.sinh(e);
+  const z = u * ch + root * sh;
+  const c = root * ch + u * sh;
+  const density = normalDensity(z);
+  const share = normalDistribution(z, density);
+  const steep = (B - A) * density * c;
+  j[0] = -steep / (root * w);
+  j[1] = (-steep * u) / root;
   j[2] = 1 - share;
   j[3] = share;
+  j[4] = steep;
   return A + (B - A) * share;
 }
 
 function worstReading(
   data: FrontData,
   weights: Float64Array,
-  [p, logW, A, B]: Four,
+  at: Shape,
   covariance: Float64Array,
 ): number {
-  const j: Four = [0, 0, 0, 0];
+  const j: Shape = [0, 0, 0, 0, 0];
   let worst = 0;
   let most = -1;
   for (let i = 0; i < weights.length; i++) {
-    const model = derivatives(data.x_m[i]!, p, Math.exp(logW), A, B, j);
+    const model = derivatives(data.x_m[i]!, at, j);
     let spread = 0;
-    for (let k = 0; k < 16; k++) spread += j[k >> 2]! * covariance[k]! * j[k & 3]!;
+    for (let a = 0; a < N; a++)
+      for (let b = 0; b < N; b++) spread += j[a]! * covariance[N * a + b]! * j[b]!;
     // A reading that the fit follows entirely (leverage 1) can show no residual.
     const free = 1 / weights[i]! - spread;
     const size = free > 0 ? (data.temperature_K[i]! - model) ** 2 / free : 0;
@@ -213,63 +230,62 @@ function worstReading(
 function whitePart(
   data: FrontData,
   weights: Float64Array,
-  [p, logW, A, B]: Four,
+  at: Shape,
   covariance: Float64Array,
 ): Float64Array {
-  const w = Math.exp(logW);
-  const white = new Float64Array(16);
-  const j: Four = [0, 0, 0, 0];
-  const gain: Four = [0, 0, 0, 0];
+  const white = new Float64Array(N * N);
+  const j: Shape = [0, 0, 0, 0, 0];
+  const gain: Shape = [0, 0, 0, 0, 0];
   for (let i = 0; i < weights.length; i++) {
-    derivatives(data.x_m[i]!, p, w, A, B, j);
-    for (let a = 0; a < 4; a++) {
+    derivatives(data.x_m[i]!, at, j);
+    for (let a = 0; a < N; a++) {
       let sum = 0;
-      for (let b = 0; b < 4; b++) sum += covariance[4 * a + b]! * j[b]!;
+      for (let b = 0; b < N; b++) sum += covariance[N * a + b]! * j[b]!;
       gain[a] = sum * weights[i]! * data.white_K[i]!;
     }
-    for (let a = 0; a < 4; a++)
-      for (let b = 0; b < 4; b++) white[4 * a + b]! += gain[a]! * gain[b]!;
+    for (let a = 0; a < N; a++)
+      for (let b = 0; b < N; b++) white[N * a + b]! += gain[a]! * gain[b]!;
   }
   return white;
 }
 
 /** Lower factor of the matrix with its diagonal raised by `damping`; null where not positive. */
 function cholesky(matrix: Float64Array, damping: number): Float64Array | null {
-  const l = new Float64Array(16);
-  for (let a = 0; a < 4; a++) {
+  const l = new Float64Array(N * N);
+  for (let a = 0; a < N; a++) {
     for (let b = 0; b <= a; b++) {
-      let sum = matrix[4 * a + b]!;
+      let sum = matrix[N * a + b]!;
       if (a === b) sum *= 1 + damping;
-      for (let k = 0; k < b; k++) sum -= l[4 * a + k]! * l[4 * b + k]!;
-      if (a !== b) l[4 * a + b] = sum / l[5 * b]!;
-      else if (sum > 1e-14 * matrix[5 * a]! && sum < Number.POSITIVE_INFINITY)
-        l[5 * a] = Math.sqrt(sum);
+      for (let k = 0; k < b; k++) sum -= l[N * a + k]! * l[N * b + k]!;
+      if (a !== b) l[N * a + b] = sum / l[(N + 1) * b]!;
+      else if (sum > 1e-14 * matrix[(N + 1) * a]! && sum < Number.POSITIVE_INFINITY)
+        l[(N + 1) * a] = Math.sqrt(sum);
       else return null;
     }
   }
   return l;
 }
 
-function solve(l: Float64Array, right: Four): Four {
-  const x: Four = [...right];
-  for (let a = 0; a < 4; a++) {
-    for (let k = 0; k < a; k++) x[a]! -= l[4 * a + k]! * x[k]!;
-    x[a]! /= l[5 * a]!;
+function solve(l: Float64Array, right: Shape): Shape {
+  const x: Shape = [...right];
+  for (let a = 0; a < N; a++) {
+    for (let k = 0; k < a; k++) x[a]! -= l[N * a + k]! * x[k]!;
+    x[a]! /= l[(N + 1) * a]!;
   }
-  for (let a = 3; a >= 0; a--) {
-    for (let k = a + 1; k < 4; k++) x[a]! -= l[4 * k + a]! * x[k]!;
-    x[a]! /= l[5 * a]!;
+  for (let a = N - 1; a >= 0; a--) {
+    for (let k = a + 1; k < N; k++) x[a]! -= l[N * k + a]! * x[k]!;
+    x[a]! /= l[(N + 1) * a]!;
   }
   return x;
 }
 
-/** Averages the two halves of a 4 x 4 in place: exact symmetry where round-off left none. */
-export function symmetrise(m: Float64Array): void {
-  for (let a = 0; a < 4; a++) {
+/** Averages the two halves of an n x n in place: exact symmetry where round-off left none. */
+export function symmetrise(m: Float64Array, n: number): void {
+  for (let a = 0; a < n; a++) {
     for (let b = 0; b < a; b++) {
-      const mean = 0.5 * (m[4 * a + b]! + m[4 * b + a]!);
-      m[4 * a + b] = mean;
-      m[4 * b + a] = mean;
+      const mean = 0.5 * (m[n * a + b]! + m[n * b + a]!);
+      m[n * a + b] = mean;
+      m[n * b + a] = mean;
     }
   }
 }

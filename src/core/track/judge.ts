@@ -47,7 +47,7 @@ export interface SensorEvidence {
 }
 
 /** Scans and limits of the judgement. */
-const GATE_SIGMAS = 4.5;
+export const GATE_SIGMAS = 4.5;
 const OUTSIDE_SCANS = 5;
 const SOUND_SIGMAS = 3;
 const SOUND_SCANS = 20;

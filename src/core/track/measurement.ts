@@ -91,13 +91,25 @@ export function projectReading(
     const row = (layout.group + group) * size;
     for (let j = 0; j < size; j++) out[j] = (out[j] as number) + (p[row + j] as number);
   }
+  return observe(model, sensor, reading, out);
+}
+
+/** H x of one reading for a vector over all states. */
+export function observe(
+  model: TubeModel,
+  sensor: number,
+  reading: ReadingModel,
+  vector: Float64Array,
+): number {
+  const { layout } = model;
+  const group = layout.groupOf[sensor] as number;
   return (
-    wA * (out[reading.cell] as number) +
-    wB * (out[reading.cell + 1] as number) +
-    wShare * (out[layout.share] as number) +
-    slope * (out[layout.position + sensor] as number) +
-    (out[layout.offset + sensor] as number) +
-    (group >= 0 ? (out[layout.group + group] as number) : 0)
+    (1 - reading.weight) * (vector[reading.cell] as number) +
+    reading.weight * (vector[reading.cell + 1] as number) -
+    reading.lag_m * reading.slope_K_m * (vector[layout.share] as number) +
+    reading.slope_K_m * (vector[layout.position + sensor] as number) +
+    (vector[layout.offset + sensor] as number) +
+    (group >= 0 ? (vector[layout.group + group] as number) : 0)
   );
 }
 
@@ -109,39 +121,112 @@ export function readingVariance(model: TubeModel, reading: ReadingModel): number
   return noise * noise + between * between;
 }
 
+/** A reading that is to be taken in: v = P H' as `projectReading` left it. */
+export interface AcceptedReading {
+  readonly sensor: number;
+  readonly reading: ReadingModel;
+  readonly v: Float64Array;
+  readonly innovation_K: number;
+}
+
 /**
- * Kalman update with one reading: x <- x + v (z - h)/S, P <- P - v v'/S, in a form that stays
- * symmetric to the bit. Temperatures move as enthalpy of the cell's table segment.
+ * Kalman update with all accepted readings of a scan at once, linearised at the prediction:
  *
- * @param v P H' as `projectReading` left it; overwritten
+ *   S = H P H' + R = L L',  W = V L'^-1,  P <- P - W W',  x <- x + V S^-1 (z - h)
+ *
+ * with V = P H' and L the Cholesky factor: symmetric to the bit, no inverse, and the same as taking
+ * the readings one after another. Temperatures move as enthalpy of the cell's table segment.
  */
-export function applyReading(
+export function applyReadings(
   model: TubeModel,
   state: TubeState,
-  innovation_K: number,
-  variance_K2: number,
-  v: Float64Array,
+  accepted: readonly AcceptedReading[],
   scratchTemperature: Float64Array,
 ): void {
   const { layout, tables } = model;
   const { size, cells } = layout;
-  const step = innovation_K / variance_K2;
+  const m = accepted.length;
+  if (m === 0) return;
+  const factor = innovationFactor(model, accepted);
+  const weights = solveNormal(factor, m, accepted);
   for (let i = 0; i < cells; i++) {
-    const h = state.enthalpy[i] as number;
-    scratchTemperature[i] = temperatureAt(tables, h) + step * (v[i] as number);
+    let t = temperatureAt(tables, state.enthalpy[i] as number);
+    for (let a = 0; a < m; a++) {
+      t += ((accepted[a] as AcceptedReading).v[i] as number) * (weights[a] as number);
+    }
+    scratchTemperature[i] = t;
   }
   for (let i = cells; i < size; i++) {
-    state.further[i - cells] = (state.further[i - cells] as number) + step * (v[i] as number);
+    let x = state.further[i - cells] as number;
+    for (let a = 0; a < m; a++) {
+      x += ((accepted[a] as AcceptedReading).v[i] as number) * (weights[a] as number);
+    }
+    state.further[i - cells] = x;
   }
   moveTo(model, state, scratchTemperature);
-  const root = 1 / Math.sqrt(variance_K2);
-  for (let i = 0; i < size; i++) v[i] = (v[i] as number) * root;
-  const p = state.covariance;
+  // Rows of W, one per state, m wide and contiguous: forward substitution with L.
+  const w = new Float64Array(size * m);
   for (let i = 0; i < size; i++) {
-    const a = v[i] as number;
-    const row = i * size;
-    for (let j = 0; j < size; j++) p[row + j] = (p[row + j] as number) - a * (v[j] as number);
+    for (let a = 0; a < m; a++) {
+      let value = (accepted[a] as AcceptedReading).v[i] as number;
+      for (let b = 0; b < a; b++) {
+        value -= (factor[a * m + b] as number) * (w[i * m + b] as number);
+      }
+      w[i * m + a] = value / (factor[a * m + a] as number);
+    }
   }
+  subtractOuter(state.covariance, w, size, m);
+}
+
+/** P <- P - W W', upper triangle computed, lower mirrored. */
+function subtractOuter(p: Float64Array, w: Float64Array, size: number, m: number): void {
+  for (let i = 0; i < size; i++) {
+    const wi = w.subarray(i * m, i * m + m);
+    for (let j = i; j < size; j++) {
+      const base = j * m;
+      let sum = 0;
+      for (let a = 0; a < m; a++) sum += (wi[a] as number) * (w[base + a] as number);
+      const value = (p[i * size + j] as number) - sum;
+      p[i * size + j] = value;
+      p[j * size + i] = value;
+    }
+  }
+}
+
+/** Lower Cholesky factor of S = H P H' + R, row-major m x m. */
+function innovationFactor(model: TubeModel, accepted: readonly AcceptedReading[]): Float64Array {
+  const m = accepted.length;
+  const s = new Float64Array(m * m);
+  for (let a = 0; a < m; a++) {
+    const { sensor, reading } = accepted[a] as AcceptedReading;
+    for (let b = 0; b <= a; b++) {
+      let value = observe(model, sensor, reading, (accepted[b] as AcceptedReading).v);
+      if (a === b) value += readingVariance(model, reading);
+      for (let c = 0; c < b; c++) value -= (s[a * m + c] as number) * (s[b * m + c] as number);
+      s[a * m + b] = a === b ? Math.sqrt(value) : value / (s[b * m + b] as number);
+    }
+  }
+  return s;
+}
+
+/** S^-1 (z - h) by the two triangular solves. */
+function solveNormal(
+  factor: Float64Array,
+  m: number,
+  accepted: readonly AcceptedReading[],
+): Float64Array {
+  const x = new Float64Array(m);
+  for (let a = 0; a < m; a++) {
+    let value = (accepted[a] as AcceptedReading).innovation_K;
+    for (let b = 0; b < a; b++) value -= (factor[a * m + b] as number) * (x[b] as number);
+    x[a] = value / (factor[a * m + a] as number);
+  }
+  for (let a = m - 1; a >= 0; a--) {
+    let value = x[a] as number;
+    for (let b = a + 1; b < m; b++) value -= (factor[b * m + a] as number) * (x[b] as number);
+    x[a] = value / (factor[a * m + a] as number);
+  }
+  return x;
 }
 
 /** Moves each cell to a temperature, starting the table search from where the cell is. */

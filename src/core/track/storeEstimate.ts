@@ -11,7 +11,7 @@ import type {
 import { energyPosition } from './energyPosition.js';
 import { type Covariance, frontSigma } from './frontSigma.js';
 import { type FoundFront, findFronts } from './fronts.js';
-import { referenceEnthalpies, storeEnergy } from './storeEnergy.js';
+import { referenceEnthalpies, type StoreEnergy } from './storeEnergy.js';
 import type { StoreModel, StoreState } from './storeTracker.js';
 import { type TubeModel, type TubeState, tubeTemperatures } from './tube.js';
 
@@ -39,12 +39,13 @@ export function meanTemperatures(model: StoreModel, state: StoreState): Float64A
 export function storeFronts(
   model: StoreModel,
   state: StoreState,
+  energy: StoreEnergy,
 ): { fronts: FrontEstimate[]; reason: FrontReason | null } {
   if (!state.started) return { fronts: [], reason: 'not_started' };
   const { store } = model;
   const mean = meanTemperatures(model, state);
   const found = findFronts(cellCentres(model), mean, store.reference_hot_K, store.reference_cold_K);
-  const covariance = meanCovariance(model, state, storeEnergy(model, state).correlation);
+  const covariance = meanCovariance(model, state, energy.correlation);
   return { fronts: found.fronts.map((f) => describe(f, covariance)), reason: found.reason };
 }
 
@@ -67,9 +68,10 @@ export function estimateStore(
     spread_ratio: number | null;
     flowing: boolean;
     fronts: ReturnType<typeof storeFronts>;
+    energy: StoreEnergy;
   },
 ): StoreEstimate {
-  const energy = storeEnergy(model, state);
+  const { energy } = extra;
   const { store } = model;
   let outlet = 0;
   model.tubes.forEach((tube, k) => {

@@ -1,8 +1,8 @@
 import { type BedTables, buildBedTables } from '../bed/tables.js';
 import type { EstimatorDefinition, StoreDefinition } from '../definitions.js';
-import { freshSensor, type Judgement, judgeSensor, type SensorMemory } from './judge.js';
+import { freshSensor, GATE_SIGMAS, judgeSensor, type SensorMemory } from './judge.js';
 import {
-  applyReading,
+  applyReadings,
   predictReading,
   projectReading,
   type ReadingModel,
@@ -118,11 +118,15 @@ export function stepStore(
   return update(model, state, values, time_ms);
 }
 
+/** A reading against its prediction, before any update of this scan. */
 interface Candidate {
   readonly tube: number;
   readonly sensor: number;
   readonly value_K: number;
-  readonly outside: boolean;
+  readonly reading: ReadingModel;
+  /** P H' (a row of the tube's scratch) and the sigma of the innovation [K]. */
+  readonly v: Float64Array;
+  readonly sigma_K: number;
 }
 
 function update(
@@ -131,99 +135,83 @@ function update(
   values: Float64Array,
   time_ms: number,
 ): StoreStep {
-  const candidates = judgeAll(model, state, values, time_ms);
-  const outside = candidates.filter((c) => c.outside).length;
-  if (candidates.length === 0) return 'predicted';
-  if (outside >= 3 && outside > MISS_SHARE * candidates.length) {
+  const candidates = predictAll(model, state, values);
+  const sound = candidates.filter(
+    (c) => Number.isFinite(c.value_K) && memoryOf(state, c).verdict === null,
+  );
+  const outside = sound.filter((c) => Math.abs(innovation(c)) > GATE_SIGMAS * c.sigma_K);
+  if (outside.length >= 3 && outside.length > MISS_SHARE * sound.length) {
+    // Most readings miss: the estimate is in doubt, not the sensors, so the verdicts stay.
     state.missed++;
     if (state.missed < MISS_SCANS) return 'missed';
     restart(model, state, values, REACQUIRE_INFLATION);
     return 'reacquired';
   }
   state.missed = 0;
-  const reading: ReadingModel = { value_K: 0, cell: 0, weight: 0, slope_K_m: 0, lag_m: 0 };
-  for (const { tube, sensor, value_K, outside: out } of candidates) {
-    if (out) continue;
-    const tubeModel = model.tubes[tube] as TubeModel;
-    const tubeState = state.tubes[tube] as TubeState;
-    const scratch = model.scratch[tube] as TubeScratch;
-    predictReading(tubeModel, tubeState, sensor, reading);
-    const projected = projectReading(tubeModel, tubeState, sensor, reading, scratch.gain);
-    const variance = projected + readingVariance(tubeModel, reading);
-    applyReading(
-      tubeModel,
-      tubeState,
-      value_K - reading.value_K,
-      variance,
-      scratch.gain,
-      scratch.temperature,
+  const accepted = judgeAll(model, state, candidates, time_ms);
+  model.tubes.forEach((tube, k) => {
+    const own = accepted.filter((c) => c.tube === k);
+    applyReadings(
+      tube,
+      state.tubes[k] as TubeState,
+      own.map((c) => ({ ...c, innovation_K: innovation(c) })),
+      (model.scratch[k] as TubeScratch).temperature,
     );
-    state.used++;
-  }
+  });
+  state.used = accepted.length;
   return state.used > 0 ? 'updated' : 'predicted';
 }
 
-/**
- * Judges every thermocouple against the prediction before any update of this scan. While most
- * readings miss, the verdicts are left alone: the estimate is in doubt, not the sensors.
- */
+const innovation = (c: Candidate): number => c.value_K - c.reading.value_K;
+
+const memoryOf = (state: StoreState, c: Candidate): SensorMemory =>
+  state.sensors[c.tube]?.[c.sensor] as SensorMemory;
+
+/** Prediction, P H' and innovation sigma of every thermocouple, missing ones included. */
+function predictAll(model: StoreModel, state: StoreState, values: Float64Array): Candidate[] {
+  return model.tubes.flatMap((tube, k) => {
+    const tubeState = state.tubes[k] as TubeState;
+    const scratch = model.scratch[k] as TubeScratch;
+    return tube.string.thermocouples.map((_, sensor): Candidate => {
+      const reading: ReadingModel = { value_K: 0, cell: 0, weight: 0, slope_K_m: 0, lag_m: 0 };
+      predictReading(tube, tubeState, sensor, reading);
+      const v = scratch.projections[sensor] as Float64Array;
+      const projected = projectReading(tube, tubeState, sensor, reading, v);
+      const sigma_K = Math.sqrt(projected + readingVariance(tube, reading));
+      const value_K = values[model.channels[k]?.[sensor] as number] as number;
+      return { tube: k, sensor, value_K, reading, v, sigma_K };
+    });
+  });
+}
+
+/** Judges every thermocouple; returns those whose reading may be used. */
 function judgeAll(
   model: StoreModel,
   state: StoreState,
-  values: Float64Array,
+  candidates: readonly Candidate[],
   time_ms: number,
 ): Candidate[] {
+  const range_K = plausibleRange(model);
+  const present = candidates.filter((c) => Number.isFinite(c.value_K)).length;
+  return candidates.filter((c) => {
+    const judgement = judgeSensor(memoryOf(state, c), {
+      time_ms,
+      value_K: c.value_K,
+      othersPresent: present > 0,
+      predicted_K: c.reading.value_K,
+      sigma_K: c.sigma_K,
+      deadband_K: model.deadbands_K[c.tube]?.[c.sensor] ?? 0,
+      range_K,
+    });
+    return judgement === 'use';
+  });
+}
+
+/** Temperatures that the plant can produce, with room for its excursions [K]. */
+function plausibleRange(model: StoreModel): readonly [number, number] {
   const { reference_hot_K: hot, reference_cold_K: cold } = model.store;
   const margin = 0.35 * (hot - cold);
-  const reading: ReadingModel = { value_K: 0, cell: 0, weight: 0, slope_K_m: 0, lag_m: 0 };
-  const rows: { tube: number; sensor: number; value: number; predicted: number; sigma: number }[] =
-    [];
-  let present = 0;
-  let beyond = 0;
-  for (let k = 0; k < model.tubes.length; k++) {
-    const tube = model.tubes[k] as TubeModel;
-    const scratch = model.scratch[k] as TubeScratch;
-    for (let s = 0; s < tube.layout.sensors; s++) {
-      const value = values[model.channels[k]?.[s] as number] as number;
-      const tubeState = state.tubes[k] as TubeState;
-      predictReading(tube, tubeState, s, reading);
-      const projected = projectReading(tube, tubeState, s, reading, scratch.gain);
-      const sigma = Math.sqrt(projected + readingVariance(tube, reading));
-      if (Number.isFinite(value)) {
-        present++;
-        if (
-          state.sensors[k]?.[s]?.verdict === null &&
-          Math.abs(value - reading.value_K) > 4.5 * sigma
-        ) {
-          beyond++;
-        }
-      }
-      rows.push({ tube: k, sensor: s, value, predicted: reading.value_K, sigma });
-    }
-  }
-  const inDoubt = beyond >= 3 && beyond > MISS_SHARE * present;
-  const out: Candidate[] = [];
-  for (const row of rows) {
-    const memory = state.sensors[row.tube]?.[row.sensor] as SensorMemory;
-    const innovation = Math.abs(row.value - row.predicted);
-    if (inDoubt) {
-      if (Number.isFinite(row.value) && memory.verdict === null) {
-        out.push({ ...row, value_K: row.value, outside: innovation > 4.5 * row.sigma });
-      }
-      continue;
-    }
-    const judgement: Judgement = judgeSensor(memory, {
-      time_ms,
-      value_K: row.value,
-      othersPresent: present > 0,
-      predicted_K: row.predicted,
-      sigma_K: row.sigma,
-      deadband_K: model.deadbands_K[row.tube]?.[row.sensor] ?? 0,
-      range_K: [cold - margin, hot + margin],
-    });
-    if (judgement === 'use') out.push({ ...row, value_K: row.value, outside: false });
-  }
-  return out;
+  return [cold - margin, hot + margin];
 }
 
 function usableReadings(
@@ -231,15 +219,14 @@ function usableReadings(
   state: StoreState,
   values: Float64Array,
 ): { tube: number; sensor: number; position_m: number; value_K: number }[] {
-  const { reference_hot_K: hot, reference_cold_K: cold } = model.store;
-  const margin = 0.35 * (hot - cold);
+  const [low, high] = plausibleRange(model);
   const out: { tube: number; sensor: number; position_m: number; value_K: number }[] = [];
   model.tubes.forEach((tube, k) => {
     tube.string.thermocouples.forEach((thermocouple, s) => {
       const value = values[model.channels[k]?.[s] as number] as number;
       const verdict = state.sensors[k]?.[s]?.verdict ?? null;
       if (verdict !== null && verdict !== 'open') return;
-      if (!(value > cold - margin && value < hot + margin)) return;
+      if (!(value > low && value < high)) return;
       out.push({ tube: k, sensor: s, position_m: thermocouple.position_m, value_K: value });
     });
   });
@@ -284,7 +271,6 @@ function rememberStart(
     for (let s = 0; s < tube.layout.sensors; s++) {
       if (readings.has(`${k}/${s}`)) continue;
       const { reference_hot_K: hot, reference_cold_K: cold } = model.store;
-      const margin = 0.35 * (hot - cold);
       judgeSensor(state.sensors[k]?.[s] as SensorMemory, {
         time_ms,
         value_K: values[model.channels[k]?.[s] as number] as number,
@@ -292,7 +278,7 @@ function rememberStart(
         predicted_K: (hot + cold) / 2,
         sigma_K: (hot - cold) / 2,
         deadband_K: 0,
-        range_K: [cold - margin, hot + margin],
+        range_K: plausibleRange(model),
       });
     }
   });

@@ -56,6 +56,8 @@ export interface TubeScratch {
   readonly slope: Float64Array;
   readonly temperature: Float64Array;
   readonly gain: Float64Array;
+  /** P H' of each thermocouple. */
+  readonly projections: readonly Float64Array[];
 }
 
 export function tubeModel(
@@ -91,6 +93,7 @@ export function createTubeScratch(layout: TubeLayout): TubeScratch {
     slope: new Float64Array(cells),
     temperature: new Float64Array(cells),
     gain: new Float64Array(layout.size),
+    projections: Array.from({ length: layout.sensors }, () => new Float64Array(layout.size)),
   };
 }
 
