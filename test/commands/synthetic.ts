@@ -12,7 +12,11 @@ function step(x: number): number {
 }
 
 /** What a channel would read while a front moves down its store; raw units. No physics is claimed. */
-function reading(unit: UnitDefinition, channel: ChannelDefinition, time_s: number): number | null {
+export function syntheticReading(
+  unit: UnitDefinition,
+  channel: ChannelDefinition,
+  time_s: number,
+): number | null {
   const { role } = channel;
   const store = (id: string) => unit.stores.find((one) => one.id === id);
   const inSi = (): number | null => {
@@ -78,7 +82,7 @@ export async function writeSynthetic(
   for (let row = 0; row < rows; row++) {
     const time_s = row * unit.scan_period_s;
     const fields: RecordedField[] = channels.map((channel) =>
-      empty.includes(row) ? null : reading(unit, channel, time_s),
+      empty.includes(row) ? null : syntheticReading(unit, channel, time_s),
     );
     await writer.write(START_MS + time_s * 1000, fields);
   }
