@@ -1,5 +1,6 @@
 import type { StoreDefinition, UnitDefinition } from '../../core/definitions.js';
 import type { Estimate, ProfileView } from '../../core/estimate.js';
+import { ZERO_CELSIUS_K } from '../../core/units.js';
 import type {
   StreamStateView,
   UnitDefinitionView,
@@ -10,7 +11,6 @@ import type { UnitNow } from './service.js';
 
 /** From SI and kelvin to the units of the edge; the only place of this adapter that converts. */
 
-const ZERO_CELSIUS_K = 273.15;
 const WATT_PER_MW = 1e6;
 
 /**

@@ -118,7 +118,7 @@ export class ScriptedPlant implements PlantService {
   now(id: string): UnitNow | undefined {
     const unit = this.units.find((candidate) => candidate.id === id);
     if (unit === undefined) return undefined;
-    const running = this.started && this.moment.mode !== 'stand';
+    const sense = { charge: 1, stand: 0, discharge: -1 }[this.moment.mode];
     return {
       unit,
       estimate: this.started ? this.estimate(unit) : null,
@@ -131,14 +131,8 @@ export class ScriptedPlant implements PlantService {
         : null,
       age_s: this.started ? this.age_s : null,
       stale: this.stale,
-      flow_kg_s: this.started ? (running ? 12.4 : 0) : null,
-      power_MW_el: running
-        ? this.moment.mode === 'charge'
-          ? -2.2
-          : 1.85
-        : this.started
-          ? 0
-          : null,
+      flow_kg_s: this.started ? 12.4 * sense : null,
+      power_MW_el: this.started ? [-1.85, 0, 2.2][sense + 1]! : null,
     };
   }
 

@@ -6,6 +6,7 @@ import {
   hoursText,
   percent,
   power,
+  withSigma,
 } from '../../../src/adapters/page/lib/format.js';
 import { roundHours, typedPower } from '../../../src/adapters/page/lib/powers.js';
 
@@ -46,6 +47,13 @@ describe('figures in words', () => {
     [-0.2, '0 s'],
   ])('says an age of %d s as %s, never more than it is', (age, words) => {
     expect(ageText(age)).toBe(words);
+  });
+
+  it('never says that a figure is certain', () => {
+    expect(withSigma(0.989, 0.0045, 2)).toBe('0.99 ± <0.01');
+    expect(withSigma(0.989, 0.005, 2)).toBe('0.99 ± 0.01');
+    expect(withSigma(0.989, null, 2)).toBe('0.99');
+    expect(withSigma(null, 0.1, 2)).toBe(DASH);
   });
 
   it('says a power no longer than needed', () => {

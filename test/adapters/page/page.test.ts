@@ -46,8 +46,10 @@ describe.skipIf(!chromium)('the page, in a real browser', { timeout: 30_000 }, (
     const text = (name: string, within?: string) => field(page, name, within).textContent();
     expect(await text('soc')).toBe('62.0');
     expect(await text('mode')).toBe('discharging');
-    expect(await text('power')).toBe('1.85');
-    expect(await text('flow')).toBe('12.4');
+    expect(await text('power')).toBe('−1.85');
+    expect(await page.locator('[data-figure="power"] small').textContent()).toBe('delivered');
+    expect(await text('flow')).toBe('−12.4');
+    expect(await page.locator('[data-figure="flow"] small').textContent()).toBe('discharging way');
     expect(await text('quality')).toBe('good');
     // The script: 0.62 of 16 MWh; p90 is 0.96 of it.
     expect(await text('dispatchable')).toBe((0.62 * 16 * 0.96).toFixed(2));
@@ -71,7 +73,7 @@ describe.skipIf(!chromium)('the page, in a real browser', { timeout: 30_000 }, (
       '1.06 ± 0.01',
       '5.14 m',
       '0.55 m',
-      '5.00 m',
+      '5.00 m, 0.7 σ',
     ]);
     expect(await text('sensors', hot)).toBe('Sensors: 40 used, 2 rejected');
     expect(await page.locator(`${hot} .rejected-list li`).first().textContent()).toContain(

@@ -44,8 +44,11 @@ export const unitStateSchema = z.object({
   dispatch: dispatchSchema.nullable(),
   age_s: z.number().nullable().describe('Age of the newest reading [s]; null before the first'),
   stale: z.boolean(),
-  flow_kg_s: z.number().nullable(),
-  power_MW_el: z.number().nullable(),
+  flow_kg_s: z.number().nullable().describe('Positive while charging'),
+  power_MW_el: z
+    .number()
+    .nullable()
+    .describe('Net at the connection point, positive while charging'),
 });
 
 export const unitNowSchema = unitStateSchema.extend({ definition: unitDefinitionSchema });

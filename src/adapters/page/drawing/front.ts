@@ -1,6 +1,6 @@
 import type { Mode } from '../../../core/definitions.js';
 import { s } from '../lib/dom.js';
-import { fixed } from '../lib/format.js';
+import { fixed, withSigma } from '../lib/format.js';
 import type { StoreProfile, StoreState } from '../lib/wire.js';
 import type { Frame } from './frame.js';
 
@@ -18,10 +18,8 @@ export function frontWords(front: Front, travel: -1 | 0 | 1): string {
   if (front.position_m === null) return 'front outside the bed';
   const going = travel === 0 ? 'at rest' : travel > 0 ? 'moving down' : 'moving up';
   const width =
-    front.width_m === null
-      ? ''
-      : `, width ${fixed(front.width_m, 2)} ± ${fixed(front.width_sigma_m, 2)} m`;
-  const at = `${fixed(front.position_m, 2)} ± ${fixed(front.position_sigma_m, 2)} m`;
+    front.width_m === null ? '' : `, width ${withSigma(front.width_m, front.width_sigma_m, 2)} m`;
+  const at = `${withSigma(front.position_m, front.position_sigma_m, 2)} m`;
   return `front ${at}${width}, ${going}`;
 }
 

@@ -10,6 +10,18 @@ export function fixed(value: number | null | undefined, digits: number): string 
   return value < 0 && Number(text) !== 0 ? MINUS + text : text;
 }
 
+/** A value with its sigma; one too small for the digits is `<0.01`, never `0.00`. */
+export function withSigma(
+  value: number | null | undefined,
+  sigma: number | null | undefined,
+  digits: number,
+): string {
+  const text = fixed(value, digits);
+  if (text === DASH || sigma === null || sigma === undefined) return text;
+  const least = 10 ** -digits;
+  return `${text} ± ${sigma > 0 && sigma < least / 2 ? `<${least.toFixed(digits)}` : fixed(sigma, digits)}`;
+}
+
 export function percent(share: number | null | undefined, digits = 1): string {
   return share === null || share === undefined ? DASH : fixed(share * 100, digits);
 }

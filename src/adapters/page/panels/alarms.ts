@@ -81,7 +81,7 @@ export function alarmsPanel(model: PageModel, api: Api, reload: () => Promise<vo
   }
   const summary = h('p', { class: 'when', role: 'status', 'data-field': 'alarm-count' });
   const fault = h('p', { class: 'fault', role: 'alert' });
-  const list = h('ul', { class: 'events' });
+  const list = h('ul', { class: 'events', tabindex: 0, 'aria-label': 'Standing' });
   const head = byId('open-count');
   byId('alarms').append(
     summary,

@@ -15,6 +15,12 @@ export function nearestToRated(entry: UnitEntry | null): DispatchAnswer | null {
   );
 }
 
+/** Flow and power are positive while charging: what the sign means, in words. */
+function bySign(value: number | null | undefined, positive: string, negative: string): string {
+  if (value === null || value === undefined || value === 0) return '';
+  return value > 0 ? positive : negative;
+}
+
 interface Figure {
   field: string;
   label: string;
@@ -54,12 +60,14 @@ const FIGURES: Figure[] = [
     label: 'Net power',
     unit: 'MW_el',
     value: ({ state }) => fixed(state?.power_MW_el, 2),
+    under: ({ state }) => bySign(state?.power_MW_el, 'drawn to charge', 'delivered'),
   },
   {
     field: 'flow',
     label: 'Flow',
     unit: 'kg/s',
     value: ({ state }) => fixed(state?.flow_kg_s, 1),
+    under: ({ state }) => bySign(state?.flow_kg_s, 'charging way', 'discharging way'),
   },
   {
     field: 'quality',

@@ -4,7 +4,7 @@ import { profileLines, shownOf, temperatureScale } from '../drawing/profile.js';
 import { Rubble } from '../drawing/rubble.js';
 import { gasArrows, strings, tubeFronts, vessel } from '../drawing/section.js';
 import { choices, h, s, setAttributes, setText, unitText } from '../lib/dom.js';
-import { DASH, fixed, percent, REASON_WORDS } from '../lib/format.js';
+import { fixed, REASON_WORDS, withSigma } from '../lib/format.js';
 import type { StoreDefinition, StreamState } from '../lib/wire.js';
 import { sensorList } from './sensors.js';
 import { stringTable } from './strings.js';
@@ -98,11 +98,9 @@ export function storeView(store: StoreDefinition, all: readonly StoreDefinition[
     const estimate = state?.estimate ?? null;
     const own = estimate?.stores[store.id] ?? null;
     const profile = state?.profile?.stores[store.id] ?? null;
-    setText(soc, own === null ? DASH : `${percent(own.soc)} ± ${percent(own.soc_sigma)}`);
-    setText(
-      stored,
-      own === null ? DASH : `${fixed(own.stored_MWh_th, 2)} ± ${fixed(own.stored_sigma_MWh_th, 2)}`,
-    );
+    const percents = (share: number | undefined) => (share === undefined ? null : share * 100);
+    setText(soc, withSigma(percents(own?.soc), percents(own?.soc_sigma), 1));
+    setText(stored, withSigma(own?.stored_MWh_th, own?.stored_sigma_MWh_th, 2));
     setText(spread, fixed(own?.spread_ratio, 2));
     setText(outlet, fixed(own?.outlet_degC, 1));
     table.update(own);
