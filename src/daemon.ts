@@ -28,6 +28,13 @@ import type { Log } from './log.js';
 export type { PlantService } from './adapters/http/service.js';
 export { type DaemonClock, fastClock, wallClock } from './daemon/clock.js';
 export { type Core, realCore } from './daemon/core.js';
+export {
+  type DemoCheck,
+  type DemoOptions,
+  demoSite,
+  runDemo,
+  runDemoCheck,
+} from './daemon/demo.js';
 
 export interface DaemonOptions {
   readonly log: Log;
@@ -53,7 +60,7 @@ export interface Daemon {
   start(): Promise<DaemonPlaces>;
   /** Ends in reverse order; may be called twice, also while it starts. */
   stop(): Promise<void>;
-  /** Resolves when every reading that is in the journal is in the estimates. */
+  /** Resolves when every reading that has come in is in the journal and in the estimates. */
   caughtUp(): Promise<void>;
 }
 
@@ -122,7 +129,7 @@ class RockhourDaemon implements Daemon {
       history: this.history,
       runners: [...this.runners.values()],
       clock: this.clock,
-      steady: new SteadyClock(this.clock.speed, 4 * this.poll_ms),
+      steady: new SteadyClock(this.clock, 4 * this.poll_ms * this.clock.speed),
       counters: this.counters,
       notices: this.notices,
       log: this.log,
@@ -179,6 +186,7 @@ class RockhourDaemon implements Daemon {
   }
 
   caughtUp(): Promise<void> {
+    this.intake.flush();
     return this.pipeline.caughtUp();
   }
 
@@ -310,7 +318,7 @@ class RockhourDaemon implements Daemon {
     const watch = new DatabaseWatch(units, new Set(stands));
     forwarder.start();
     this.ending.push(() => forwarder.stop());
-    this.every(DATABASE_LOOK_EVERY_MS / this.clock.speed, () => {
+    this.every(DATABASE_LOOK_EVERY_MS / Math.max(1, this.clock.speed), () => {
       // Nothing has been tried yet: neither up nor down.
       if (!forwarder.proven && forwarder.trouble === null) return;
       for (const event of watch.step(this.clock.now(), forwarder.trouble)) {
@@ -328,7 +336,7 @@ class RockhourDaemon implements Daemon {
       () => {
         this.mayClose = true;
       },
-      (patience_s * 1000) / this.clock.speed,
+      (patience_s * 1000) / Math.max(1, this.clock.speed),
     );
     this.ending.push(() => clearTimeout(patience));
     this.every(RETENTION_EVERY_MS, () => this.retain());

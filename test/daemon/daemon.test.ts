@@ -2,6 +2,7 @@ import type { MqttClient } from 'mqtt';
 import { describe, expect, it } from 'vitest';
 import { Assembler } from '../../src/core/scan/assemble.js';
 import type { Scan } from '../../src/core/scan/scan.js';
+import { fastClock } from '../../src/daemon.js';
 import { requireProgram } from '../support/requirements.js';
 import { startMosquitto } from '../support/services.js';
 import { waitFor } from '../support/wait.js';
@@ -144,7 +145,7 @@ describe.skipIf(!mosquitto)('a daemon at a real broker', () => {
 
   it('closes empty scans while nothing comes, tells it, and says all of it again after a restart', async () => {
     const { url } = await broker();
-    const fast = { now: () => Date.now(), speed: 600 };
+    const fast = fastClock(Date.now(), 600);
     const site = smallSite(url);
     const daemon = makeDaemon(site, { clock: fast });
     const told: string[] = [];
@@ -245,7 +246,7 @@ describe('a daemon with its own broker', () => {
 
   it('makes the same scans of its journal again as it made live, partial and empty ones included', async () => {
     const site = smallSite(null);
-    const daemon = makeDaemon(site, { clock: { now: () => Date.now(), speed: 600 } });
+    const daemon = makeDaemon(site, { clock: fastClock(Date.now(), 600) });
     const { broker: url } = await daemon.start();
     const client = await publisher(url);
     await waitFor('the link', () => daemon.service.health()[0]!.ok);
