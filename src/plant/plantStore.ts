@@ -24,7 +24,7 @@ export interface PlantStoreTruth {
   readonly flow_factors: Readonly<Record<string, number>>;
 }
 
-const START_SOC = 0.35;
+const START_SOC = 0.5;
 const START_WIDTH_M = 0.4;
 
 export function createPlantStore(definition: StoreDefinition, random: Random): PlantStore {

@@ -57,7 +57,7 @@ export function incidentsOf(unit: UnitDefinition): Incidents {
   if (!dusty || !thermocouple)
     throw new RangeError(`unit ${unit.id} has no store with a thermocouple`);
   return {
-    dust: { cycle: 1, store: dusty.id, factor: 0.25, over_s: 3 * HOUR },
+    dust: { cycle: 1, store: dusty.id, factor: 0.15, over_s: 2 * HOUR },
     stuck: { cycle: 2, after_s: HOUR, channel: thermocouple.id },
   };
 }
