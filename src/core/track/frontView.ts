@@ -6,6 +6,7 @@ import {
   type FrontReferences,
   type FrontViewReason,
   fitFront,
+  type NoFrontFit,
 } from './frontViewFit.js';
 import {
   startTracked,
@@ -40,6 +41,13 @@ export interface FrontViewInput {
   /** Expected travel since the last scan, + = away from the charge inlet [m], and its sigma [m]. */
   readonly travel_m: number;
   readonly travelSigma_m: number;
+  /**
+   * How far the front in the readings stands from the rock's, + = away from the charge inlet [m], and
+   * its sigma [m]: a junction that sees the share s of the gas reads the rock at x - s l, l the signed
+   * gas lag G cf/hv, less the way the front goes within its own lag. 0 where left out.
+   */
+  readonly readingShift_m?: number;
+  readonly readingShiftSigma_m?: number;
   /** Expected growth of width squared since the last scan [m2]; negative while a front sharpens. */
   readonly spread_m2: number;
 }
@@ -96,43 +104,42 @@ export function startFrontView(string: {
 export function stepFrontView(state: FrontViewState, input: FrontViewInput): FrontViewStep {
   requirePositive('length_m', input.length_m);
   requireNotNegative('travelSigma_m', input.travelSigma_m);
-  if (!Number.isFinite(input.travel_m)) throw new RangeError(`travel_m is ${input.travel_m}`);
-  if (!Number.isFinite(input.spread_m2)) throw new RangeError(`spread_m2 is ${input.spread_m2}`);
+  requireNotNegative('readingShiftSigma_m', input.readingShiftSigma_m ?? 0);
+  for (const name of ['travel_m', 'spread_m2', 'readingShift_m'] as const) {
+    const value = input[name] ?? 0;
+    if (!Number.isFinite(value)) throw new RangeError(`${name} is ${value}`);
+  }
 
   const fit = fitFront(input.readings, input.references);
+  const measured = fit.seen ? measuredPosition(fit, input) : null;
+  const width = measuredWidth(fit);
   if (fit.seen) state.leftOut += fit.left_out;
+  const reason = fit.seen ? null : fit.reason;
   if (state.position === null) {
-    if (fit.seen) begin(state, fit);
-    return publish(state, fit.seen ? null : fit.reason);
+    if (measured !== null) begin(state, measured, width);
+    return publish(state, reason);
   }
   const turned = Math.abs(input.travel_m) / state.spacing_m;
   const predicted = stepTracked(state.position, input.travel_m, input.travelSigma_m, turned, null);
-  const contradicted = fit.seen
-    ? jumps(predicted, fit)
-    : missesFront(predicted, fit.reason, input.readings);
+  const contradicted =
+    measured !== null ? jumps(predicted, measured) : missesFront(predicted, reason, input.readings);
   state.misses = contradicted ? state.misses + 1 : 0;
   if (state.misses >= JUMP_SCANS) {
-    if (fit.seen) {
-      begin(state, fit);
+    if (measured !== null) {
+      begin(state, measured, width);
       state.restarts++;
     } else drop(state);
-    return publish(state, fit.seen ? null : fit.reason);
+    return publish(state, reason);
   }
-  const taken = fit.seen && !contradicted ? fit : null;
+  const taken = contradicted ? null : measured;
   state.position =
     taken === null
       ? predicted
-      : stepTracked(
-          state.position,
-          input.travel_m,
-          input.travelSigma_m,
-          turned,
-          measuredPosition(taken),
-        );
-  advanceWidth(state, taken, input, turned);
+      : stepTracked(state.position, input.travel_m, input.travelSigma_m, turned, taken);
+  advanceWidth(state, contradicted ? null : width, input, turned);
   const { mean } = state.position.filter;
   if (mean < 0 || mean > input.length_m) drop(state);
-  return publish(state, fit.seen ? (contradicted ? 'jump' : null) : fit.reason);
+  return publish(state, contradicted && measured !== null ? 'jump' : reason);
 }
 
 /**
@@ -153,28 +160,34 @@ export function disagreement(
   return Number.isFinite(value) ? value : null;
 }
 
-function measuredPosition(fit: FrontFit): TrackedMeasurement {
+function measuredPosition(fit: FrontFit, input: FrontViewInput): TrackedMeasurement {
   const whole = fit.covariance[0]!;
   const white = fit.white[0]!;
   const lasting = fit.width_m === null ? whole : Math.max(0, whole - white);
-  return { value: fit.position_m, white, lasting };
-}
-
-/** var(w^2) = 4 w^2 var(w), to first order. */
-function measuredWidth(fit: FrontFit | null): TrackedMeasurement | null {
-  if (fit === null || fit.width_m === null) return null;
-  const square = fit.width_m * fit.width_m;
-  const white = 4 * square * fit.white[5]!;
   return {
-    value: square,
+    value: fit.position_m - (input.readingShift_m ?? 0),
     white,
-    lasting: Math.max(0, 4 * square * fit.covariance[5]! - white),
+    lasting: lasting + (input.readingShiftSigma_m ?? 0) ** 2,
   };
 }
 
-function begin(state: FrontViewState, fit: FrontFit): void {
-  state.position = startTracked(measuredPosition(fit));
-  const width = measuredWidth(fit);
+/** var(w^2) = 4 w^2 var(w), to first order. */
+function measuredWidth(fit: FrontFit | NoFrontFit): TrackedMeasurement | null {
+  if (!fit.seen || fit.width_m === null) return null;
+  const factor = 4 * fit.width_m ** 2;
+  return {
+    value: fit.width_m ** 2,
+    white: factor * fit.white[5]!,
+    lasting: factor * Math.max(0, fit.covariance[5]! - fit.white[5]!),
+  };
+}
+
+function begin(
+  state: FrontViewState,
+  position: TrackedMeasurement,
+  width: TrackedMeasurement | null,
+): void {
+  state.position = startTracked(position);
   state.widthSquared = width && startTracked(width);
   state.misses = 0;
 }
@@ -186,15 +199,16 @@ function drop(state: FrontViewState): void {
   state.dropped++;
 }
 
-function jumps(predicted: TrackedScalar, fit: FrontFit): boolean {
-  const variance = predicted.filter.variance + predicted.lasting + fit.covariance[0]!;
-  return Math.abs(fit.position_m - predicted.filter.mean) > JUMP_SIGMAS * Math.sqrt(variance);
+function jumps(predicted: TrackedScalar, measured: TrackedMeasurement): boolean {
+  const variance =
+    predicted.filter.variance + predicted.lasting + measured.white + measured.lasting;
+  return Math.abs(measured.value - predicted.filter.mean) > JUMP_SIGMAS * Math.sqrt(variance);
 }
 
 /** No front among the readings although one is predicted well inside them. */
 function missesFront(
   predicted: TrackedScalar,
-  reason: FrontViewReason,
+  reason: FrontViewReason | null,
   readings: readonly FrontReading[],
 ): boolean {
   if (reason !== 'uniform' && reason !== 'no_half_crossing') return false;
@@ -210,11 +224,10 @@ function missesFront(
  */
 function advanceWidth(
   state: FrontViewState,
-  fit: FrontFit | null,
+  measured: TrackedMeasurement | null,
   input: FrontViewInput,
   turned: number,
 ): void {
-  const measured = measuredWidth(fit);
   if (state.widthSquared === null) {
     state.widthSquared = measured && startTracked(measured);
     return;

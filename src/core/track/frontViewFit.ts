@@ -66,8 +66,8 @@ export interface NoFrontFit {
 
 /** Sigma of the prior on each plateau, as a share of the range between the references. */
 const PLATEAU_PRIOR = 0.1;
-/** Sigma of the prior on the skew: at 0.3 one flank is 2.4 times as long as the other. */
-const SKEW_PRIOR = 0.3;
+/** Sigma of the prior on the skew: at 0.15 one half is 1.13 times as wide as the other. */
+const SKEW_PRIOR = 0.15;
 /** A fit whose squared residuals are this many times too large is tried without its worst reading, */
 const BAD_MISFIT = 4;
 /** and that is taken where it makes them smaller by this factor, with at least as many left. */
@@ -80,7 +80,7 @@ const LEAST_LEFT = 6;
  *
  * Position and width are those of the definition, on the fitted curve and by the references of the
  * store: theta = 0.5, and half the way from 0.16 to 0.84 (`publishFront`). Priors, weak on purpose:
- * each plateau at its reference with a tenth of the range, no skew +/- 0.3, ln w over everything from
+ * each plateau at its reference with a tenth of the range, no skew +/- 0.15, ln w over everything from
  * a quarter of the spacing to half the readings' reach as plus and minus one sigma. They decide only
  * what the readings leave open, such as a plateau outside the string. Where the residuals are larger
  * than their sigmas (the front has another shape) the covariance grows by chi squared over its

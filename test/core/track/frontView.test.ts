@@ -16,6 +16,7 @@ import {
   normals,
   places,
   temperatureOf,
+  widthOf,
 } from './frontViewStrings.js';
 
 const REFERENCES = { charged_K: HOT, discharged_K: COLD };
@@ -58,7 +59,7 @@ describe('front view of a string', () => {
     expect(first.reason).toBeNull();
     // Sigma of the fit is some millimetres, and the readings are exact.
     expect(Math.abs(first.position_m! - 2)).toBeLessThan(1e-3);
-    expect(Math.abs(first.width_m! - 0.4)).toBeLessThan(1e-3);
+    expect(Math.abs(first.width_m! - widthOf(front(2)))).toBeLessThan(1e-3);
   });
 
   it('predicts by travel and growth alone while it sees nothing, and sigmas add up linearly', () => {
@@ -114,7 +115,7 @@ describe('front view of a string', () => {
         });
         if (k < 20 || view.position_m === null || view.width_m === null) continue;
         const z = (view.position_m - truth.p) / view.position_sigma_m!;
-        const zw = (view.width_m - Math.sqrt(truth.w2)) / view.width_sigma_m!;
+        const zw = (view.width_m - widthOf(shape)) / view.width_sigma_m!;
         squares += z * z;
         widthSquares += zw * zw;
         worst = Math.max(worst, Math.abs(z), Math.abs(zw));
@@ -184,7 +185,7 @@ describe('front view of a string', () => {
     const state = startFrontView(stringOf(14));
     stepFrontView(state, inputOf(front(2)));
     const view = stepFrontView(state, blind({ spread_m2: -1 }));
-    expect(view.width_m! ** 2).toBeCloseTo(0.08, 3);
+    expect(view.width_m! ** 2).toBeCloseTo(0.5 * widthOf(front(2)) ** 2, 3);
     expect(state.floored).toBe(1);
   });
 
@@ -202,6 +203,20 @@ describe('front view of a string', () => {
       expect(view.position_sigma_m).toBeLessThan(spacing);
     }
     expect(worst).toBeLessThan(3);
+  });
+
+  it('takes the gas share of the junctions into account, and its doubt', () => {
+    const state = startFrontView(stringOf(14));
+    const shift = { readingShift_m: 0.03, readingShiftSigma_m: 0.02 };
+    const view = stepFrontView(state, inputOf(front(2), shift));
+    expect(Math.abs(view.position_m! - 1.97)).toBeLessThan(1e-3);
+    // Many scans later the doubt is still there.
+    let last = view;
+    for (let k = 0; k < 500; k++) last = stepFrontView(state, inputOf(front(2), shift));
+    expect(last.position_sigma_m).toBeGreaterThan(0.02);
+    expect(last.position_sigma_m).toBeLessThan(0.021);
+    // Once the gas stands there is none.
+    expect(stepFrontView(state, inputOf(front(2))).position_sigma_m).toBeLessThan(0.01);
   });
 
   it('continues to the last bit from a saved state', () => {

@@ -18,6 +18,7 @@ import {
   places,
   temperatureOf,
   uniforms,
+  widthOf,
 } from './frontViewStrings.js';
 
 const HOT_STORE = { charged_K: HOT, discharged_K: COLD };
@@ -33,6 +34,22 @@ function seen(fit: FrontFit | NoFrontFit): FrontFit {
   if (!fit.seen) throw new Error(`no front: ${fit.reason}`);
   return fit;
 }
+/** A front skewed by the transform of Jones & Pewsey, written with its own functions. */
+function skewed({ p, w, A, B }: ErfFront, e: number, x: number): number {
+  const z = Math.sinh(Math.asinh((x - p) / w) + e);
+  return A + (B - A) * 0.5 * (1 + erf(z / Math.SQRT2));
+}
+/** Where a falling curve passes theta of HOT and COLD. */
+function crossing(curve: (x: number) => number, theta: number): number {
+  let low = -5;
+  let high = 10;
+  for (let i = 0; i < 70; i++) {
+    const middle = 0.5 * (low + high);
+    if (curve(middle) > COLD + theta * (HOT - COLD)) low = middle;
+    else high = middle;
+  }
+  return low;
+}
 const reasonOf = (fit: FrontFit | NoFrontFit) => (fit.seen ? null : fit.reason);
 
 describe('fit of a front', () => {
@@ -43,44 +60,81 @@ describe('fit of a front', () => {
     // Bias of the priors: (sigma_fit/sigma_prior)^2 of their distance, here (1e-6)^2; the steps end
     // a thousandth of a sigma from the minimum, sigma_fit being about 1e-6 m.
     expect(Math.abs(fit.position_m - 2.13)).toBeLessThan(1e-8);
-    expect(Math.abs(fit.width_m! - 0.4)).toBeLessThan(1e-8);
+    expect(Math.abs(fit.width_m! - widthOf(front))).toBeLessThan(1e-8);
     expect(Math.abs(fit.hot_plateau_K - HOT)).toBeLessThan(1e-5);
     expect(Math.abs(fit.cold_plateau_K - COLD)).toBeLessThan(1e-5);
 
     const mirrored = readingsOf({ ...front, A: COLD, B: HOT }, 14, 1e-3);
     const cold = seen(fitFront(mirrored, { charged_K: COLD, discharged_K: HOT }));
     expect(Math.abs(cold.position_m - 2.13)).toBeLessThan(1e-8);
-    expect(Math.abs(cold.width_m! - 0.4)).toBeLessThan(1e-8);
+    expect(Math.abs(cold.width_m! - widthOf(front))).toBeLessThan(1e-8);
     expect(Math.abs(cold.hot_plateau_K - HOT)).toBeLessThan(1e-5);
   });
 
-  it('agrees with ml-levenberg-marquardt on the same readings, to a small share of a sigma', () => {
+  it('agrees with ml-levenberg-marquardt on the same readings and priors', () => {
+    const reach = (LENGTH * 13) / 14;
+    const [narrow, wide] = [(0.25 * reach) / 13, 0.5 * reach];
+    const range = HOT - COLD;
+    // A prior is a datum: the parameter itself, with the prior's mean and sigma, at a made-up x.
+    const priors = [
+      { value: 0.5 * Math.log(narrow * wide), sigma: 0.5 * Math.log(wide / narrow) },
+      { value: HOT, sigma: 0.1 * range },
+      { value: COLD, sigma: 0.1 * range },
+      { value: 0, sigma: 0.15 },
+    ];
     for (let seed = 1; seed <= 10; seed++) {
       const readings = readingsOf(front, 14, 2, normals(seed));
       const fit = seen(fitFront(readings, HOT_STORE));
       const other = levenbergMarquardt(
-        { x: readings.map((r) => r.x_m), y: readings.map((r) => r.temperature_K) },
-        ([p, w, A, B]) =>
-          (x: number) =>
-            A! + (B! - A!) * 0.5 * (1 + erf((x - p!) / (w! * Math.SQRT2))),
         {
-          initialValues: [2, 0.5, HOT - 10, COLD + 10],
-          maxIterations: 200,
+          x: [...readings.map((r) => r.x_m), ...priors.map((_, k) => 1000 + k)],
+          y: [
+            ...readings.map((r) => r.temperature_K / 2),
+            ...priors.map(({ value, sigma }) => value / sigma),
+          ],
+        },
+        (parameters) => {
+          const [p, logW, A, B, e] = parameters as [number, number, number, number, number];
+          return (x: number) =>
+            x < 1000
+              ? skewed({ p, w: Math.exp(logW), A, B }, e, x) / 2
+              : parameters[x - 999]! / priors[x - 1000]!.sigma;
+        },
+        {
+          initialValues: [2, Math.log(0.5), HOT - 10, COLD + 10, 0.1],
+          maxIterations: 300,
           errorTolerance: 1e-12,
           damping: 1e-3,
           gradientDifference: 1e-5,
           centralDifference: true,
         },
       );
-      const [p, w, A, B] = other.parameterValues as [number, number, number, number];
-      const fitted = { p, w, A, B };
-      // It knows no priors. Theirs pulls the plateaus by (sigma_fit/47 K)^2 of 2 K, a thousandth of
-      // a sigma, and ln w by (sigma/w)^2 in units of its prior: together below 2 % of a sigma.
+      const [p, logW, A, B, e] = other.parameterValues as [number, number, number, number, number];
+      const curve = (x: number) => skewed({ p, w: Math.exp(logW), A, B }, e, x);
+      const half = 0.5 * (crossing(curve, 0.16) - crossing(curve, 0.84));
+      // The steps of the fit end a thousandth of a sigma from the minimum; the other's derivatives are
+      // differences, good to 1e-5 of themselves, which does not move a minimum by more.
       const sigma = (k: number) => Math.sqrt(fit.covariance[5 * k]!);
-      expect(Math.abs(fit.position_m - halfCrossing(fitted))).toBeLessThan(0.02 * sigma(0));
-      expect(Math.abs(fit.width_m! - w)).toBeLessThan(0.02 * sigma(1));
-      expect(Math.abs(fit.hot_plateau_K - A)).toBeLessThan(0.02 * sigma(2));
-      expect(Math.abs(fit.cold_plateau_K - B)).toBeLessThan(0.02 * sigma(3));
+      expect(Math.abs(fit.position_m - crossing(curve, 0.5))).toBeLessThan(2e-3 * sigma(0));
+      expect(Math.abs(fit.width_m! - half)).toBeLessThan(2e-3 * sigma(1));
+      expect(Math.abs(fit.hot_plateau_K - A)).toBeLessThan(2e-3 * sigma(2));
+      expect(Math.abs(fit.cold_plateau_K - B)).toBeLessThan(2e-3 * sigma(3));
+    }
+  });
+
+  it('follows a skewed front, which an erf alone would put off by a tenth of its width', () => {
+    for (const e of [-0.4, -0.2, 0.2, 0.4]) {
+      const curve = (x: number) => skewed({ ...front, p: 2.4, w: 0.7 }, e, x);
+      const readings = places(14).map((x) => ({
+        x_m: x,
+        temperature_K: curve(x),
+        sigma_K: 0.01,
+      }));
+      const fit = seen(fitFront(readings, HOT_STORE));
+      // The prior on the skew pulls by (1e-4/0.15)^2 of it; sigma of the fit is 2e-5 m.
+      expect(Math.abs(fit.position_m - crossing(curve, 0.5))).toBeLessThan(1e-5);
+      const half = 0.5 * (crossing(curve, 0.16) - crossing(curve, 0.84));
+      expect(Math.abs(fit.width_m! - half)).toBeLessThan(1e-5);
     }
   });
 
@@ -115,7 +169,7 @@ describe('fit of a front', () => {
       if (!fit.seen || fit.width_m === null) continue;
       fits++;
       const z = (fit.position_m - halfCrossing(truth)) / Math.sqrt(fit.covariance[0]!);
-      const zw = (fit.width_m - truth.w) / Math.sqrt(fit.covariance[5]!);
+      const zw = (fit.width_m - widthOf(truth)) / Math.sqrt(fit.covariance[5]!);
       squares += z * z;
       widthSquares += zw * zw;
       // Of 3000 normal numbers one passes 4.8 once in 200 such tests; the fit is not linear: 6.
@@ -206,33 +260,25 @@ describe('fit of a front', () => {
       const fit = seen(fitFront(readings, HOT_STORE));
       expect(fit.left_out).toBe(1);
       expect(Math.abs(fit.position_m - 2.13)).toBeLessThan(4 * Math.sqrt(fit.covariance[0]!));
-      expect(Math.abs(fit.width_m! - 0.4)).toBeLessThan(4 * Math.sqrt(fit.covariance[5]!));
+      expect(Math.abs(fit.width_m! - widthOf(front))).toBeLessThan(
+        4 * Math.sqrt(fit.covariance[5]!),
+      );
     }
   });
 
-  it('grows its sigmas where the front is no erf, and keeps all readings then', () => {
-    // A charging hot store whose heat capacity rises with temperature: a long hot flank, skewed.
-    const skewed = (x: number) => {
-      const u = (x - 2.13) / 0.4;
-      return (
-        HOT +
-        (COLD - HOT) *
-          0.5 *
-          (1 + erf((u + 0.25 * (u * u - 1) * Math.exp((-u * u) / 4)) / Math.SQRT2))
-      );
-    };
-    const readings = places(14).map((x) => ({ x_m: x, temperature_K: skewed(x), sigma_K: 0.5 }));
+  it('grows its sigmas where the front has another shape, and keeps all readings then', () => {
+    // Two fronts that have not run together: a landing at 60 % between them.
+    const stairs = (x: number) =>
+      COLD +
+      (HOT - COLD) *
+        (1 - 0.4 * 0.5 * (1 + erf((x - 1.2) / 0.25)) - 0.6 * 0.5 * (1 + erf((x - 2.9) / 0.35)));
+    const readings = places(14).map((x) => ({ x_m: x, temperature_K: stairs(x), sigma_K: 0.5 }));
     const fit = seen(fitFront(readings, HOT_STORE));
-    let low = 1;
-    let high = 3;
-    for (let k = 0; k < 60; k++) {
-      const middle = 0.5 * (low + high);
-      if (skewed(middle) > 0.5 * (HOT + COLD)) low = middle;
-      else high = middle;
-    }
     expect(fit.left_out).toBe(0);
     expect(fit.misfit).toBeGreaterThan(50);
-    expect(Math.abs(fit.position_m - low)).toBeLessThan(3 * Math.sqrt(fit.covariance[0]!));
+    expect(Math.abs(fit.position_m - crossing(stairs, 0.5))).toBeLessThan(
+      3 * Math.sqrt(fit.covariance[0]!),
+    );
     // A single scan's noise does not explain it: the white part stays what the noise makes of it.
     expect(fit.white[0]).toBeLessThan(0.05 * fit.covariance[0]!);
   });

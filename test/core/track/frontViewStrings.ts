@@ -43,17 +43,26 @@ export function temperatureOf({ p, w, A, B }: ErfFront, x: number): number {
   return A + (B - A) * 0.5 * (1 + erf((x - p) / (w * Math.SQRT2)));
 }
 
-/** Where the front passes the middle of HOT and COLD, by bisection. */
-export function halfCrossing(front: ErfFront): number {
+/** Where the front passes theta of HOT and COLD, by bisection. */
+export function crossingOf(front: ErfFront, theta: number): number {
   let low = -20;
   let high = 25;
   const falls = front.A > front.B;
   for (let i = 0; i < 80; i++) {
     const middle = 0.5 * (low + high);
-    if (temperatureOf(front, middle) > 0.5 * (HOT + COLD) === falls) low = middle;
+    if (temperatureOf(front, middle) > COLD + theta * (HOT - COLD) === falls) low = middle;
     else high = middle;
   }
   return low;
+}
+
+export function halfCrossing(front: ErfFront): number {
+  return crossingOf(front, 0.5);
+}
+
+/** Half the distance between the 16 % and 84 % crossings; 0.99446 w where the plateaus are HOT and COLD. */
+export function widthOf(front: ErfFront): number {
+  return 0.5 * Math.abs(crossingOf(front, 0.16) - crossingOf(front, 0.84));
 }
 
 /** Places of n thermocouples, evenly over the length. */
