@@ -1,6 +1,7 @@
 import { existsSync } from 'node:fs';
 import { join } from 'node:path';
 import { fileURLToPath } from 'node:url';
+import { FolderLock } from './adapters/history/folderLock.js';
 import { History } from './adapters/history/history.js';
 import { InfluxForwarder } from './adapters/history/influxForwarder.js';
 import { Journal } from './adapters/history/journal.js';
@@ -191,6 +192,9 @@ class RockhourDaemon implements Daemon {
   }
 
   private async startAll(): Promise<DaemonPlaces> {
+    const lock = new FolderLock(this.site.store.folder);
+    lock.start();
+    this.ending.push(() => lock.stop());
     await this.startBroker();
     this.journal.start();
     this.ending.push(() => this.journal.stop());
