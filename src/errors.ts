@@ -88,12 +88,6 @@ export const ERRORS = {
     meaning: 'The MQTT broker does not answer or refuses the connection.',
     advice: 'Check mqtt.url, the user name and the password, and that the broker runs.',
   },
-  DATABASE_UNREACHABLE: {
-    exit: 'outside',
-    meaning:
-      'The time-series database does not answer; what is due to it waits in the local store.',
-    advice: 'Check influx.url and that the database runs; nothing is lost meanwhile.',
-  },
   STORE_FAILED: {
     exit: 'outside',
     meaning: 'The local store (SQLite) cannot be opened or written.',

@@ -1,10 +1,14 @@
 import { Command, CommanderError } from 'commander';
 import { register as registerCheck } from './commands/check.js';
+import { register as registerDemo } from './commands/demo.js';
 import { closingHelp } from './commands/help.js';
 import { register as registerHours } from './commands/hours.js';
 import { register as registerReplay } from './commands/replay.js';
 import { packageVersion, register as registerRun } from './commands/run.js';
 import { EXIT_CODES, exitCodeOf, explain } from './errors.js';
+
+/** In the order of the help. */
+const COMMANDS = [registerRun, registerDemo, registerReplay, registerHours, registerCheck];
 
 function fail(thrown: unknown): void {
   process.stderr.write(`${explain(thrown)}\n`);
@@ -19,8 +23,7 @@ function createProgram(): Command {
     .addHelpText('after', closingHelp())
     .showSuggestionAfterError()
     .exitOverride();
-  for (const register of [registerRun, registerReplay, registerHours, registerCheck])
-    register(program);
+  for (const register of COMMANDS) register(program);
   return program;
 }
 
