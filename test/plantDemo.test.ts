@@ -147,17 +147,14 @@ describe("the demonstration plant's bed", () => {
         end_exchange_W_K: 6e3,
       });
       fine.fill(() => start);
-      // The finer plant's wall takes up some heat; without the wall's exchange it would not be itself.
       const hours = 5;
       for (let n = 0; n < hours * 240; n++) stepBed(coarse, 15, 17, inlet, start);
       for (let n = 0; n < hours * 180; n++) fine.step(20, 17, inlet, start);
       const a = frontsOf(coarse.rock_K, bed.length_m / CELLS, cold, hot)[0]!;
       const b = frontsOf(fine.mean, fine.c.cellLength_m, cold, hot)[0]!;
-      const wallShare = wallHeat(fine, start) / Math.abs(fine.heatAbove_J(start));
-      const travelled = b.position_m;
-      // Two virial forms differ by 0.05 % of cp in the mean; cells of 58 mm place a crossing to a tenth of a cell.
-      const tolerance_m = travelled * (wallShare + 0.001) + 0.1 * (bed.length_m / CELLS);
-      expect(wallShare).toBeLessThan(0.02);
+      // Two virial forms differ by up to 0.1 % of cp; cells of 58 mm place a crossing to a tenth of a cell.
+      // What the finer plant's wall takes up it takes behind the front, where it shifts no crossing.
+      const tolerance_m = 0.001 * b.position_m + 0.1 * (bed.length_m / CELLS);
       expect(Math.abs(a.position_m - b.position_m)).toBeLessThan(tolerance_m);
       // Widths: second-order spreading of the coarser, its (dx/width)^2, and the grains' inner lag.
       const dx = bed.length_m / CELLS;
@@ -165,11 +162,6 @@ describe("the demonstration plant's bed", () => {
     },
   );
 });
-
-function wallHeat(fine: ReturnType<typeof createBed>, start: number): number {
-  const per = Math.PI * fine.p.diameter_m * fine.c.cellLength_m * fine.p.wall_capacity_J_m2K;
-  return fine.wall.reduce((sum, T) => sum + per * Math.abs(T - start), 0);
-}
 
 /** Runs until a condition holds; fails after so many plant hours. */
 function runUntil(plant: DemoPlant, hours: number, done: () => boolean): void {
@@ -279,7 +271,6 @@ describe('the demonstration plant', () => {
       ...unit,
       channels: unit.channels.map((c) => (c.id === 'ambient' ? { ...c, raw_unit: 'mV' } : c)),
     };
-    const plant = createDemoPlant(volts);
-    expect(() => plant.step()).toThrow(/channel ambient.*mV/);
+    expect(() => createDemoPlant(volts)).toThrow(/channel ambient.*mV/);
   });
 });

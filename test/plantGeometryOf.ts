@@ -5,12 +5,13 @@ import type {
 } from '../src/core/definitions.js';
 import { fromSi } from '../src/core/units.js';
 import type { ChannelMeasure, PlantGeometry, RawUnit, StoreGeometry } from './plant/geometry.js';
+import { SOLIDS } from './plant/solids.js';
 
 /**
  * The finer plant's literal of a configured unit. It lies outside test/plant, which imports nothing
  * from src.
  * @param rated_flow_kg_s flow to which the finer plant's meter slope and loop loss refer
- * @param solids `own`: the finer plant's data of the rock's name; `configured`: those of the unit
+ * @param solids `own`: the finer plant's data where it has a rock of that name; `configured`: the unit's
  */
 export function geometryOf(
   unit: UnitDefinition,
@@ -36,7 +37,12 @@ export function geometryOf(
     }),
     raw_units: Object.fromEntries(
       unit.channels.flatMap((channel): [string, RawUnit][] => {
-        if (channel.role.kind === 'mode') return [];
+        if (
+          channel.role.kind === 'mode' ||
+          channel.role.kind === 'valve' ||
+          channel.raw_unit === 'mV'
+        )
+          return [];
         const offset = fromSi(channel.raw_unit, 0);
         const scale = fromSi(channel.raw_unit, 1) - offset;
         return scale === 1 && offset === 0 ? [] : [[channel.id, { scale, offset }]];
@@ -47,8 +53,8 @@ export function geometryOf(
 
 function storeOf(store: StoreDefinition, solids: 'own' | 'configured'): StoreGeometry {
   const { bed } = store;
-  const fluid = bed.fluid.name;
-  if (fluid !== 'argon' && fluid !== 'air') {
+  const fluid = bed.fluid.phase === 'liquid' ? 'salt' : bed.fluid.name;
+  if (fluid !== 'argon' && fluid !== 'air' && fluid !== 'salt') {
     throw new RangeError(`store ${store.id}: the finer plant has no fluid ${fluid}`);
   }
   return {
@@ -59,7 +65,7 @@ function storeOf(store: StoreDefinition, solids: 'own' | 'configured'): StoreGeo
     particle_diameter_m: bed.particle_diameter_m,
     void_fraction: bed.void_fraction,
     particle_shape: bed.particle_shape,
-    solid: solids === 'own' ? bed.solid.name : bed.solid,
+    solid: solids === 'own' && bed.solid.name in SOLIDS ? bed.solid.name : bed.solid,
     fluid,
     pressure_Pa: bed.pressure_Pa,
     reference_hot_K: store.reference_hot_K,
@@ -87,9 +93,11 @@ function measureOf(channel: ChannelDefinition): ChannelMeasure | null {
   const { role } = channel;
   switch (role.kind) {
     case 'flow':
-      if (role.sense !== 'signed')
-        throw new RangeError(`channel ${channel.id}: only a signed flow is simulated`);
-      return { measures: 'flow' };
+      return role.sense === 'signed'
+        ? { measures: 'flow' }
+        : { measures: 'flow', sense: role.sense };
+    case 'valve':
+      return { measures: 'valve', opens: role.opens };
     case 'power':
     case 'mode':
     case 'ambient_temperature':

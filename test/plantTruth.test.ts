@@ -4,7 +4,7 @@ import { createMachine } from '../src/core/machine/machine.js';
 import { flowForPower, GasCycle, type MachineDraw } from './plant/cycle.js';
 import { DEMO_GEOMETRY } from './plant/demoGeometry.js';
 import { drawPlant, groupError } from './plant/draws.js';
-import type { GasCycleGeometry, PlantGeometry } from './plant/geometry.js';
+import { type GasCycleGeometry, type PlantGeometry, withReadOnlyString } from './plant/geometry.js';
 import { headerOf, rowOf } from './plant/recording.js';
 import { scheduleFor } from './plant/schedules.js';
 import { createTruth, type ScanReadings, type TruthOptions } from './plant/truth.js';
@@ -287,6 +287,22 @@ describe('the sensors', () => {
     const mean = scans.reduce((sum, s) => sum + s.readings[t.id]!, 0) / scans.length;
     // 30 readings of 0.15 K noise: standard error 0.027 K; the bed moves less than 0.05 K meanwhile.
     expect(Math.abs(mean - T)).toBeLessThan(4 * 0.027 + 0.05);
+  });
+
+  it('of a string without area read the same plant', () => {
+    const more = withReadOnlyString(GEOMETRY, 'hot', {
+      id: 'mean',
+      radius_m: 3.3 / Math.SQRT2,
+      thermocouples: [{ id: 'hot_mean_1', position_m: 1.4, group: null }],
+    });
+    const a = plant({ ...NOMINAL });
+    const b = plant({ ...NOMINAL, geometry: more });
+    const charge = [{ mode: 'charge', flow_kg_s: 18, duration_s: 0.5 * H }] as const;
+    const [scanA, scanB] = [a.run(charge), b.run(charge)].map((r) => r.scans.at(-1)!.readings);
+    expect(a.stores[0]!.bed.mean).toEqual(b.stores[0]!.bed.mean);
+    expect(scanA!.hot_mean_1).toBeUndefined();
+    expect(scanB!.hot_mean_1).toBeGreaterThan(400);
+    expect(b.truth().stores.hot!.strings.at(-1)).toMatchObject({ id: 'mean', position_m: null });
   });
 
   it('fail as asked', () => {

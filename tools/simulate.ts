@@ -5,19 +5,24 @@
  *
  * Options: --schedule day|partial|standing, --hours-at 1.6,1 (MW, true hours every --hours-every
  * minutes), --physics nominal|random, --machine known|random, --sensors exact|independent|class,
- * --meter exact|random, --faults FILE.json (list of faults of test/plant/faults.ts),
+ * --config plant.yaml (another plant than that of config/demo.yaml; two stores with an argon
+ * cycle, or one hot store with air), --meter exact|random, --faults FILE.json (list of faults of test/plant/faults.ts),
  * --changes FILE.json, --scan SECONDS.
  */
 import { createWriteStream, readFileSync } from 'node:fs';
 import { parseArgs } from 'node:util';
+import { loadSite } from '../src/config/load.js';
 import { DEMO_GEOMETRY } from '../test/plant/demoGeometry.js';
+import type { PlantGeometry } from '../test/plant/geometry.js';
 import { headerOf, rowOf, truthLineOf } from '../test/plant/recording.js';
 import { scheduleFor } from '../test/plant/schedules.js';
 import { createTruth } from '../test/plant/truth.js';
+import { geometryOf } from '../test/plantGeometryOf.js';
 
 const { values } = parseArgs({
   options: {
     seed: { type: 'string', default: '1' },
+    config: { type: 'string' },
     hours: { type: 'string', default: '24' },
     out: { type: 'string' },
     truth: { type: 'string' },
@@ -55,9 +60,14 @@ if (!values.out) {
   process.exit(2);
 }
 const list = (file: string | undefined) => (file ? JSON.parse(readFileSync(file, 'utf8')) : []);
-const geometry = values.scan
-  ? { ...DEMO_GEOMETRY, scan_period_s: number('scan', values.scan) }
-  : DEMO_GEOMETRY;
+/** The first unit of a configuration; its rated flow is taken as two thirds of the greatest. */
+function configured(file: string): PlantGeometry {
+  const unit = loadSite(file).units[0];
+  if (!unit) throw new RangeError(`${file} has no unit`);
+  return geometryOf(unit, (2 / 3) * unit.limits.discharge.flow_max_kg_s);
+}
+const plain = values.config ? configured(values.config) : DEMO_GEOMETRY;
+const geometry = values.scan ? { ...plain, scan_period_s: number('scan', values.scan) } : plain;
 const plant = createTruth({
   seed: number('seed', values.seed),
   geometry,

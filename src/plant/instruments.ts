@@ -46,6 +46,7 @@ export class Instruments {
     stores: readonly PlantStore[],
     private readonly random: Random,
   ) {
+    for (const channel of unit.channels) toRaw(channel.id, channel.raw_unit, 300);
     this.junctions = unit.channels.flatMap((channel): Junction[] => {
       const { role } = channel;
       if (role.kind !== 'thermocouple') return [];

@@ -58,7 +58,8 @@ export interface HeaterGeometry {
 
 /** What a channel other than a thermocouple in the bed measures. */
 export type ChannelMeasure =
-  | { readonly measures: 'flow' }
+  | { readonly measures: 'flow'; readonly sense?: 'signed' | 'unsigned' | 'charge' | 'discharge' }
+  | { readonly measures: 'valve'; readonly opens: 'charge' | 'discharge' }
   | { readonly measures: 'power' }
   | { readonly measures: 'mode' }
   | { readonly measures: 'ambient_temperature' }
@@ -88,4 +89,23 @@ export interface PlantGeometry {
   readonly channels: readonly ({ readonly id: string } & ChannelMeasure)[];
   /** Raw units by channel id; a channel without one is recorded in SI units and kelvin. */
   readonly raw_units: Readonly<Record<string, RawUnit>>;
+}
+
+/**
+ * The same plant with one more string in a store that stands for no area: its thermocouples are
+ * read like the others, and the rings stay as they are. So one truth serves several layouts.
+ */
+export function withReadOnlyString(
+  geometry: PlantGeometry,
+  storeId: string,
+  string: Omit<StoreGeometry['strings'][number], 'area_share'>,
+): PlantGeometry {
+  return {
+    ...geometry,
+    stores: geometry.stores.map((store) =>
+      store.id === storeId
+        ? { ...store, strings: [...store.strings, { ...string, area_share: 0 }] }
+        : store,
+    ),
+  };
 }

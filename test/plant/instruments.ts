@@ -62,8 +62,14 @@ export class Instruments {
   ): number {
     const { machine, rated_power_W } = this.geometry;
     switch (channel.measures) {
-      case 'flow':
-        return room.flow_kg_s * meterFactor(room) * (1 + NOISE.flow * z);
+      case 'flow': {
+        const flow = room.flow_kg_s * meterFactor(room) * (1 + NOISE.flow * z);
+        if (channel.sense === 'unsigned') return Math.abs(flow);
+        if (channel.sense === 'charge') return Math.max(0, flow);
+        return channel.sense === 'discharge' ? Math.max(0, -flow) : flow;
+      }
+      case 'valve':
+        return room.mode === channel.opens ? 1 : 0;
       case 'power':
         return (
           room.power_W + NOISE.power * z * Math.max(Math.abs(room.power_W), 0.02 * rated_power_W)
