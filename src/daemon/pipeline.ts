@@ -1,4 +1,3 @@
-import type { Checkpoint } from '../adapters/history/checkpoints.js';
 import type { History } from '../adapters/history/history.js';
 import type { Journal, JournalEntry } from '../adapters/history/journal.js';
 import type { WatchEvent } from '../core/watch/event.js';
@@ -285,8 +284,11 @@ export class Pipeline {
       `scan_failures ${runner.unit.id}`,
       `unit ${runner.unit.id}: a scan could not be taken in: ${reasonOf(thrown)}`,
     );
-    const sound: Checkpoint | undefined = history.checkpoints.list(runner.unit)[0];
-    runner.recover(sound);
+    try {
+      runner.recover(history.checkpoints.list(runner.unit)[0]);
+    } catch {
+      runner.recover(undefined);
+    }
   }
 }
 

@@ -1,4 +1,4 @@
-import type { Checkpoint } from '../adapters/history/checkpoints.js';
+import type { Checkpoint, StoredCheckpoint } from '../adapters/history/checkpoints.js';
 import type { JournalEntry } from '../adapters/history/journal.js';
 import type { Measured } from '../adapters/history/series.js';
 import type { UnitDefinition } from '../core/definitions.js';
@@ -86,9 +86,9 @@ export class UnitRunner {
     this.taken_seq = seq;
   }
 
-  /** @throws RangeError where the checkpoint does not fit this unit or this build */
-  restore(checkpoint: Checkpoint): void {
-    const image = checkpoint.image as RunnerImage;
+  /** Throws where the checkpoint is damaged or does not fit this unit or this build. */
+  restore(checkpoint: StoredCheckpoint): void {
+    const image = checkpoint.load() as RunnerImage;
     const assembler = new Assembler(this.unit, this.options, this.finish);
     assembler.restore(image.assembler);
     this.state = this.core.restoreUnit(this.unit, image.unit);
@@ -97,7 +97,7 @@ export class UnitRunner {
   }
 
   /** The whole state; null before the first scan. */
-  checkpoint(): Omit<Checkpoint, 'unit'> | null {
+  checkpoint(): Checkpoint | null {
     if (this.state.time_ms === null) return null;
     const image: RunnerImage = {
       unit: this.core.saveUnit(this.state),
@@ -151,8 +151,8 @@ export class UnitRunner {
   }
 
   /** After a failure of the core: back to a sound state, or to none; time passes on from there. */
-  recover(checkpoint: Checkpoint | undefined): void {
-    const image = checkpoint?.image as RunnerImage | undefined;
+  recover(checkpoint: StoredCheckpoint | undefined): void {
+    const image = checkpoint?.load() as RunnerImage | undefined;
     this.state = image
       ? this.core.restoreUnit(this.unit, image.unit)
       : this.core.startUnit(this.unit);

@@ -7,13 +7,17 @@ import type { Database } from './database.js';
 const KEEP = 3;
 
 export interface Checkpoint {
-  readonly unit: string;
   /** Source time of the last scan taken in [ms]. */
   readonly time_ms: number;
   /** Last journal entry taken in. */
   readonly journal_seq: number;
   /** What was saved; structured-cloneable. */
   readonly image: unknown;
+}
+
+export interface StoredCheckpoint extends Omit<Checkpoint, 'image'> {
+  /** The image; throws where it is damaged. */
+  load(): unknown;
 }
 
 /**
@@ -28,7 +32,7 @@ export function fingerprint(unit: UnitDefinition): string {
 export class Checkpoints {
   constructor(private readonly database: Database) {}
 
-  add(unit: UnitDefinition, checkpoint: Omit<Checkpoint, 'unit'>): void {
+  add(unit: UnitDefinition, checkpoint: Checkpoint): void {
     const { time_ms, journal_seq, image } = checkpoint;
     this.database.transaction(() => {
       this.database
@@ -47,7 +51,7 @@ export class Checkpoints {
   }
 
   /** Checkpoints of a unit, newest first, without those of another definition of it. */
-  list(unit: UnitDefinition): Checkpoint[] {
+  list(unit: UnitDefinition): StoredCheckpoint[] {
     const rows = this.database
       .prepare(
         `SELECT time, journal_seq, image FROM checkpoints WHERE unit = ? AND fingerprint = ?
@@ -55,10 +59,9 @@ export class Checkpoints {
       )
       .all(unit.id, fingerprint(unit)) as { time: number; journal_seq: number; image: Buffer }[];
     return rows.map((row) => ({
-      unit: unit.id,
       time_ms: row.time,
       journal_seq: row.journal_seq,
-      image: deserialize(row.image),
+      load: () => deserialize(row.image),
     }));
   }
 

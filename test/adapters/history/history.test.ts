@@ -235,7 +235,7 @@ describe('checkpoints', () => {
     }
     const list = history.checkpoints.list(unit);
     expect(list.map((one) => one.journal_seq)).toEqual([50, 40, 30]);
-    expect(list[0]!.image).toEqual({
+    expect(list[0]!.load()).toEqual({
       state: new Float64Array([5, Number.NaN]),
       open: new Map([[5, 'x']]),
     });

@@ -1,0 +1,147 @@
+import { join } from 'node:path';
+import SQLite from 'better-sqlite3';
+import { describe, expect, it } from 'vitest';
+import type { SiteConfig } from '../../src/config/site.js';
+import type { UnitDefinition } from '../../src/core/definitions.js';
+import { fakeCore } from './fakeCore.js';
+import {
+  count,
+  counted,
+  makeDaemon,
+  publisher,
+  publishScan,
+  storedEntries,
+  storedEstimates,
+} from './harness.js';
+import { PERIOD_MS, smallSite } from './site.js';
+
+const START = Date.now() - 100 * PERIOD_MS;
+
+/** Changes a stopped daemon's history as a crash or a damage would. */
+function change(site: SiteConfig, sql: string): void {
+  const database = new SQLite(join(site.store.folder, 'history.sqlite'));
+  database.exec(sql);
+  database.close();
+}
+
+/** A site whose daemon has taken in 80 scans, with checkpoints every ten, and was stopped. */
+async function worked(): Promise<SiteConfig> {
+  const made = smallSite(null);
+  const site = { ...made, store: { ...made.store, checkpoint_every_s: 300 } };
+  const daemon = makeDaemon(site);
+  const { broker } = await daemon.start();
+  const client = await publisher(broker);
+  for (let i = 0; i < 80; i++) {
+    await publishScan(client, START + i * PERIOD_MS, [300 + i, 310 + Math.sin(i), 320, i]);
+  }
+  await counted(daemon, 'scans', 80);
+  await daemon.stop();
+  return site;
+}
+
+async function restarted(site: SiteConfig): Promise<Record<string, number>> {
+  const daemon = makeDaemon(site);
+  await daemon.start();
+  await daemon.stop();
+  return daemon.service.counters();
+}
+
+const LAST = '(SELECT max(time) FROM checkpoints)';
+
+describe('a daemon that was killed', () => {
+  it('restores its last checkpoint and makes the scans since again, to the last bit', async () => {
+    const site = await worked();
+    const before = storedEstimates(site);
+    // The checkpoint of the clean stop, and all estimates behind the one before.
+    change(
+      site,
+      `DELETE FROM checkpoints WHERE time = ${LAST};
+       DELETE FROM estimates WHERE time > ${LAST}; DELETE FROM events; DELETE FROM standing;`,
+    );
+    const left = storedEstimates(site).length;
+    expect(left).toBeGreaterThan(60);
+    expect(left).toBeLessThan(80);
+    const counters = await restarted(site);
+    expect(storedEstimates(site)).toEqual(before);
+    expect(counters.scans).toBe(80 - left);
+    // What is replayed was counted when it came.
+    expect(counters.taken).toBe(0);
+  });
+
+  it('before its first checkpoint makes everything again from the journal', async () => {
+    const site = await worked();
+    const before = storedEstimates(site);
+    change(site, 'DELETE FROM checkpoints; DELETE FROM estimates; DELETE FROM dispatch;');
+    await restarted(site);
+    expect(storedEstimates(site)).toEqual(before);
+  });
+
+  it('with a checkpoint that is damaged goes back to the one before', async () => {
+    const site = await worked();
+    const before = storedEstimates(site);
+    change(
+      site,
+      `UPDATE checkpoints SET image = x'ff0f22' WHERE time = ${LAST}; DELETE FROM estimates;`,
+    );
+    await restarted(site);
+    const after = storedEstimates(site);
+    expect(after.length).toBeGreaterThan(0);
+    expect(after).toEqual(before.slice(-after.length));
+  });
+
+  it('with another definition of its unit starts afresh, says that old alarms are void, and goes on', async () => {
+    const site = await worked();
+    const standing = `'u/data_stale/unit', 'u', 'unacknowledged', NULL`;
+    const event = {
+      ...{ id: 'u/data_stale/unit', unit: 'u', kind: 'data_stale', class: 'alert' },
+      ...{ priority: 'high', subject: 'unit', transition: 'raised', message: 'no data' },
+      ...{ time: new Date(START).toISOString(), value: null, limit: null },
+    };
+    change(site, `INSERT INTO standing VALUES (${standing}, '${JSON.stringify(event)}')`);
+    const [unit] = site.units;
+    const changed = { ...unit, hours_at_W: [2e6] } as UnitDefinition;
+    const daemon = makeDaemon({ ...site, units: [changed] });
+    await daemon.start();
+    expect(daemon.service.standing()).toMatchObject([{ state: 'returned_unacknowledged' }]);
+    expect(daemon.service.events('u', 0, Date.now() + 1e6, 10)).toMatchObject([
+      { transition: 'returned', message: expect.stringContaining('started afresh') },
+    ]);
+    expect(count(daemon, 'scans')).toBe(80);
+    await daemon.stop();
+  });
+});
+
+describe('a core that fails on a scan', () => {
+  it('costs that scan, is counted and shown, and the daemon goes on', async () => {
+    const site = smallSite(null);
+    let isBroken = false;
+    const daemon = makeDaemon(site, {
+      core: {
+        ...fakeCore,
+        advance(...args) {
+          if (isBroken) throw new Error('a covariance has lost its sign');
+          return fakeCore.advance(...args);
+        },
+      },
+    });
+    const { broker } = await daemon.start();
+    const client = await publisher(broker);
+    await publishScan(client, START, [1, 2, 3]);
+    await counted(daemon, 'scans', 1);
+    isBroken = true;
+    await publishScan(client, START + PERIOD_MS, [1, 2, 3]);
+    await counted(daemon, 'scan_failures', 1);
+    const unitPart = () => daemon.service.health().find(({ name }) => name === 'unit u');
+    expect(unitPart()).toMatchObject({
+      ok: false,
+      detail: 'the last scan failed: a covariance has lost its sign',
+    });
+    isBroken = false;
+    await publishScan(client, START + 2 * PERIOD_MS, [1, 2, 3]);
+    await counted(daemon, 'scans', 2);
+    expect(unitPart()?.detail).toContain('newest reading');
+    await daemon.stop();
+    expect(storedEstimates(site)).toHaveLength(2);
+    expect(storedEntries(site).filter((entry) => entry.kind === 'reading')).toHaveLength(9);
+  });
+});
