@@ -3,6 +3,7 @@ import type {
   StoreDefinition,
   UnitDefinition,
 } from '../src/core/definitions.js';
+import { millivoltFromCelsius } from '../src/core/thermocouple/its90.js';
 import { fromSi } from '../src/core/units.js';
 import type { ChannelMeasure, PlantGeometry, RawUnit, StoreGeometry } from './plant/geometry.js';
 import { SOLIDS } from './plant/solids.js';
@@ -37,18 +38,31 @@ export function geometryOf(
     }),
     raw_units: Object.fromEntries(
       unit.channels.flatMap((channel): [string, RawUnit][] => {
-        if (
-          channel.role.kind === 'mode' ||
-          channel.role.kind === 'valve' ||
-          channel.raw_unit === 'mV'
-        )
-          return [];
-        const offset = fromSi(channel.raw_unit, 0);
-        const scale = fromSi(channel.raw_unit, 1) - offset;
-        return scale === 1 && offset === 0 ? [] : [[channel.id, { scale, offset }]];
+        const raw = rawUnitOf(channel);
+        return raw === null ? [] : [[channel.id, raw]];
       }),
     ),
   };
+}
+
+/** Null where the recording holds SI units anyway. */
+function rawUnitOf(channel: ChannelDefinition): RawUnit | null {
+  if (channel.role.kind === 'mode' || channel.role.kind === 'valve') return null;
+  const { raw_unit, thermocouple_type: type, cold_junction } = channel;
+  if (raw_unit === 'mV') {
+    if (type === null || cold_junction === null) {
+      throw new RangeError(`channel ${channel.id} is in mV without a type or a cold junction`);
+    }
+    return (si, readings) => {
+      const junction_K =
+        typeof cold_junction === 'number' ? cold_junction : readings[cold_junction]!;
+      const voltage = (T: number) => millivoltFromCelsius(type, T - 273.15);
+      return voltage(si) - voltage(junction_K);
+    };
+  }
+  const offset = fromSi(raw_unit, 0);
+  const scale = fromSi(raw_unit, 1) - offset;
+  return scale === 1 && offset === 0 ? null : { scale, offset };
 }
 
 function storeOf(store: StoreDefinition, solids: 'own' | 'configured'): StoreGeometry {
@@ -102,6 +116,7 @@ function measureOf(channel: ChannelDefinition): ChannelMeasure | null {
     case 'mode':
     case 'ambient_temperature':
     case 'auxiliary_power':
+    case 'cold_junction':
       return { measures: role.kind };
     case 'gas_temperature':
       return { measures: role.kind, store: role.store, end: role.end === 'charge_inlet' ? 0 : 1 };

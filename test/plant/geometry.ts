@@ -64,15 +64,18 @@ export type ChannelMeasure =
   | { readonly measures: 'mode' }
   | { readonly measures: 'ambient_temperature' }
   | { readonly measures: 'auxiliary_power' }
+  | { readonly measures: 'cold_junction' }
   | { readonly measures: 'gas_temperature'; readonly store: string; readonly end: 0 | 1 }
   | { readonly measures: 'pressure'; readonly store: string }
   | { readonly measures: 'pressure_drop'; readonly store: string };
 
-/** Raw unit of a channel in a recording: raw = SI * scale + offset. */
-export interface RawUnit {
-  readonly scale: number;
-  readonly offset: number;
-}
+/**
+ * Raw unit of a channel in a recording: raw = SI * scale + offset, or a function of the value and of
+ * all readings of its scan in SI units (a voltage needs its cold junction).
+ */
+export type RawUnit =
+  | { readonly scale: number; readonly offset: number }
+  | ((si: number, readings: Readonly<Record<string, number>>) => number);
 
 export interface PlantGeometry {
   readonly id: string;

@@ -85,6 +85,9 @@ export class Instruments {
         return room.mode === 'charge' ? 1 : room.mode === 'stand' ? 0 : -1;
       case 'ambient_temperature':
         return room.ambient_K() + NOISE.ambient_K * z;
+      case 'cold_junction':
+        // The cabinet follows the day; what the compensation misses is the error of the group.
+        return 298.15 + 4 * Math.sin((2 * Math.PI * room.elapsed_s) / 86400);
       case 'gas_temperature': {
         const T = this.pipeJunction[channel.id] ?? storeOf(room, channel.store).pipe_K[channel.end];
         return T + room.draw.gasSensors[channel.id]!.offset_K + NOISE.gas_K * z;

@@ -30,6 +30,8 @@ export class MachineRoom {
   /** Why the present command ended, null while it goes on. */
   stoppedBy: EndedBy | 'charge_limit' | null = null;
   private sinceChange_s = 1e9;
+  /** Outlets of the step before the last, for looking half a step ahead. */
+  private outletsBefore: readonly [hot: number, cold: number] = [Number.NaN, Number.NaN];
   /** Changes that have begun, with the heat-transfer factor of that moment. */
   private readonly begun: Map<PlantChange, number>;
 
@@ -51,6 +53,7 @@ export class MachineRoom {
       this.power_W = from.power_W;
       this.stoppedBy = from.stoppedBy;
       this.sinceChange_s = from.sinceChange_s;
+      this.outletsBefore = from.outletsBefore;
       this.begun = new Map(from.begun);
       return;
     }
@@ -130,8 +133,9 @@ export class MachineRoom {
 
   /** Sends a flow through machine and stores for one step. */
   private pushFlow(charging: boolean, flow: number, dt_s: number, ambient: number): CyclePoint {
-    const [hot, cold] = this.outlets(charging);
+    const [hot, cold] = this.comingOutlets(charging);
     const point = this.cycle.point(charging, flow, hot, cold, ambient);
+    this.outletsBefore = this.outlets(charging);
     for (const store of this.stores) {
       const inlet = store.geometry.kind === 'hot' ? point.hotInlet_K : point.coldInlet_K;
       store.step(dt_s, charging ? flow : -flow, inlet, ambient);
@@ -150,6 +154,18 @@ export class MachineRoom {
     return [hot, cold];
   }
 
+  /**
+   * Outlets in the middle of the coming step, by a straight line through those of the last two (each is
+   * that of the middle of its step), so that machine and stores do not lag each other by a step.
+   * While the plenum is being swept, the last one.
+   */
+  private comingOutlets(charging: boolean): [hot: number, cold: number] {
+    const now = this.outlets(charging);
+    if (this.sinceChange_s < SWEEP_S) return now;
+    const on = (a: number, b: number) => (Number.isNaN(b) ? a : 2 * a - b);
+    return [on(now[0], this.outletsBefore[0]), on(now[1], this.outletsBefore[1])];
+  }
+
   /** Flow that a command asks for now [kg/s]; NaN where none delivers its power. */
   private targetFlow(command: Segment, ambient: number): number {
     if (command.flow_kg_s !== undefined) return command.flow_kg_s;
@@ -157,7 +173,7 @@ export class MachineRoom {
       throw new RangeError(`segment ${command.mode} has neither power_W nor flow_kg_s`);
     }
     const charging = command.mode === 'charge';
-    const [hot, cold] = this.outlets(charging);
+    const [hot, cold] = this.comingOutlets(charging);
     const guess = Math.abs(this.flow_kg_s) || this.geometry.rated_flow_kg_s;
     const power = charging ? command.power_W : -command.power_W;
     return flowForPower(this.cycle, charging, power, hot, cold, ambient, guess);

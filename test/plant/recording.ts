@@ -1,4 +1,4 @@
-import type { PlantGeometry } from './geometry.js';
+import type { PlantGeometry, RawUnit } from './geometry.js';
 import type { PlantTruth, ScanReadings } from './truth.js';
 
 /** Columns of a recording after `time`: thermocouples in the order of the strings, then the other channels. */
@@ -19,9 +19,14 @@ export function rowOf(geometry: PlantGeometry, scan: ScanReadings): string {
     const si = scan.readings[id];
     if (si === undefined || Number.isNaN(si)) return '';
     const raw = geometry.raw_units[id];
-    return String(Number((raw ? si * raw.scale + raw.offset : si).toPrecision(6)));
+    return String(Number(rawOf(raw, si, scan.readings).toPrecision(6)));
   });
   return [isoOf(scan.time_s), ...fields].join(',');
+}
+
+function rawOf(raw: RawUnit | undefined, si: number, readings: ScanReadings['readings']): number {
+  if (raw === undefined) return si;
+  return typeof raw === 'function' ? raw(si, readings) : si * raw.scale + raw.offset;
 }
 
 export function isoOf(time_s: number): string {

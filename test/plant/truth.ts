@@ -114,8 +114,8 @@ export class Truth {
   }
 
   /** True hours at constant net power from now on; see `trueHours`. */
-  hoursAt(power_W: number, horizon_h?: number): TrueHours {
-    return trueHours(this.room, power_W, horizon_h);
+  hoursAt(power_W: number, step_s?: number, horizon_h?: number): TrueHours {
+    return trueHours(this.room, power_W, step_s, horizon_h);
   }
 }
 
