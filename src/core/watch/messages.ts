@@ -64,6 +64,18 @@ export function sensorReturned(store: string, sensor: string): string {
   return `Thermocouple ${sensor} in store ${store} is used again.`;
 }
 
+export function manySensorsRaised(store: string, count: number, all: number): string {
+  return (
+    `Store ${store}: ${count} of ${all} thermocouples are left out at once. So many point to one cause: ` +
+    'a card, cable or cold junction they share, or a bed that no longer behaves as modelled. Look at ' +
+    'their groups, at the heat-transfer factor and at the front views; trust the energy less meanwhile.'
+  );
+}
+
+export function manySensorsReturned(store: string, count: number, all: number): string {
+  return `Store ${store}: ${count} of ${all} thermocouples are left out, no longer many.`;
+}
+
 export function staleRaised(unit: string, age_s: number, limit_s: number): string {
   return (
     `Unit ${unit}: no reading for ${duration(age_s)} (limit ${duration(limit_s)}). Fronts, energy and ` +

@@ -39,6 +39,9 @@ export interface WatchState {
 const DISAGREEMENT = { limit: 3, deadband: 1, on_delay_s: 900, off_delay_s: 900 };
 /** A spread counts as evidence where the ratio less this many sigmas is above the limit. */
 const SPREAD_SIGMAS = 2;
+/** So many rejected sensors of one store are one event: this share of them, and at least so many. */
+const MANY_SHARE = 0.2;
+const MANY_LEAST = 4;
 /** A delay starts afresh after this many scan periods without a scan. */
 const GAP_SCANS = 5;
 
@@ -136,6 +139,10 @@ function watchSpread(
   );
 }
 
+/**
+ * One event per sensor; but where many of a store are rejected at once there is one common cause, and
+ * one event for the store instead of a flood (ISA-18.2): those not told of yet wait until it is over.
+ */
 function watchSensors(
   unit: UnitDefinition,
   state: WatchState,
@@ -144,15 +151,25 @@ function watchSensors(
   step: Step,
 ): void {
   const rule = unit.watch.sensor_rejected;
-  for (const string of store.strings) {
-    for (const { id } of string.thermocouples) {
-      const rejected = estimate.sensors.rejected.find((sensor) => sensor.id === id);
-      if (rejected === undefined && state.conditions[`sensor_rejected/${id}`] === undefined)
-        continue;
-      step('sensor_rejected', id, rejected ? 'active' : 'clear', rule, null, null, () =>
-        rejected ? say.sensorRaised(store.id, rejected) : say.sensorReturned(store.id, id),
-      );
-    }
+  const ids = store.strings.flatMap((string) => string.thermocouples.map(({ id }) => id));
+  const { rejected } = estimate.sensors;
+  const many = Math.max(MANY_LEAST, MANY_SHARE * ids.length);
+  const flood = rejected.length >= many;
+  const count = rejected.length;
+  step('sensor_rejected', store.id, flood ? 'active' : 'clear', rule, count, many, (raised) =>
+    raised
+      ? say.manySensorsRaised(store.id, count, ids.length)
+      : say.manySensorsReturned(store.id, count, ids.length),
+  );
+  for (const id of ids) {
+    const known = state.conditions[`sensor_rejected/${id}`];
+    const sensor = rejected.find((one) => one.id === id);
+    if (sensor === undefined && known === undefined) continue;
+    const evidence =
+      sensor === undefined ? 'clear' : flood && !known?.raised ? 'unknown' : 'active';
+    step('sensor_rejected', id, evidence, rule, null, null, () =>
+      sensor ? say.sensorRaised(store.id, sensor) : say.sensorReturned(store.id, id),
+    );
   }
 }
 

@@ -1,5 +1,6 @@
 import fc from 'fast-check';
 import { describe, expect, it } from 'vitest';
+import type { StoreDefinition } from '../../../src/core/definitions.js';
 import { SENSOR_VERDICTS, type StoreEstimate } from '../../../src/core/estimate.js';
 import { EVENT_KINDS, type WatchEvent } from '../../../src/core/watch/event.js';
 import { KIND_CLASSES } from '../../../src/core/watch/kinds.js';
@@ -106,6 +107,42 @@ describe('a sensor that is rejected', () => {
       expect(event.message).toMatch(/Thermocouple hot_a_2 in store hot .*Look at [a-z].*\.$/);
       expect(event.message).not.toContain('undefined');
     }
+  });
+
+  it('is one event for the store where many are rejected at once, and one each for those that stay', () => {
+    const unit = unitOf();
+    const [hot, cold] = unit.stores as [StoreDefinition, StoreDefinition];
+    const thermocouples = Array.from({ length: 20 }, (_, k) => ({
+      id: `t${k}`,
+      position_m: 0.05 * k,
+      group: null,
+    }));
+    const wide = { ...hot, strings: [{ ...hot.strings[0]!, thermocouples }] };
+    const without = (n: number): Scan => ({
+      hot: {
+        sensors: {
+          used: 20 - n,
+          rejected: thermocouples.slice(0, n).map(({ id }) => ({
+            id,
+            verdict: 'drifting' as const,
+            since: '2026-01-01T00:00:00Z',
+            evidence: '',
+          })),
+        },
+      },
+    });
+    const scans = [...times(10, without(12)), ...times(10, without(2)), ...times(10, without(0))];
+    const events = run(scans, { ...unit, stores: [wide, cold] });
+    expect(short(events)).toEqual([
+      '60 one/sensor_rejected/hot raised',
+      '360 one/sensor_rejected/hot returned',
+      '360 one/sensor_rejected/t0 raised',
+      '360 one/sensor_rejected/t1 raised',
+      '660 one/sensor_rejected/t0 returned',
+      '660 one/sensor_rejected/t1 returned',
+    ]);
+    expect(events[0]![1]).toMatchObject({ value: 12, limit: 4 });
+    expect(events[0]![1].message).toMatch(/12 of 20 thermocouples/);
   });
 
   it('is not raised by a verdict that comes and goes', () => {
