@@ -1,6 +1,7 @@
+import type { Shape } from './frontViewAlgebra.js';
 import type { FrontFit } from './frontViewFit.js';
 import { normalDensity, normalQuantile } from './frontViewNormal.js';
-import type { FrontData, FrontPrior, Shape } from './frontViewSolve.js';
+import type { FrontData, FrontPrior } from './frontViewSolve.js';
 
 /** A reading between these shares of the step stands in the steep part of an erf front. */
 const STEEP_SHARE = 0.03;

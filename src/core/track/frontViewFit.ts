@@ -1,8 +1,9 @@
 import { requireNotNegative, requirePositive } from '../misuse.js';
 import { findFronts } from './fronts.js';
+import type { Shape } from './frontViewAlgebra.js';
 import { bracketFront, steepReadings } from './frontViewBracket.js';
 import { publishFront } from './frontViewPublish.js';
-import { type FrontData, type FrontPrior, type Shape, solveFront } from './frontViewSolve.js';
+import { type FrontData, type FrontPrior, solveFront } from './frontViewSolve.js';
 
 /** One thermocouple of a string that gave a value this scan. */
 export interface FrontReading {

@@ -1,12 +1,7 @@
+import { SHAPE_SIZE, type Shape, symmetrise } from './frontViewAlgebra.js';
 import type { FrontFit, FrontReferences, NoFrontFit } from './frontViewFit.js';
 import { normalDensity, normalQuantile } from './frontViewNormal.js';
-import {
-  type FrontData,
-  type FrontSolution,
-  SHAPE_SIZE,
-  type Shape,
-  symmetrise,
-} from './frontViewSolve.js';
+import type { FrontData, FrontSolution } from './frontViewSolve.js';
 
 /** Nearer to a plateau than this share of the fitted step, a level is not passed with any certainty. */
 const NEAR_PLATEAU = 0.02;
