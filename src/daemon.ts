@@ -3,27 +3,24 @@ import { join } from 'node:path';
 import { fileURLToPath } from 'node:url';
 import { FolderLock } from './adapters/history/folderLock.js';
 import { History } from './adapters/history/history.js';
-import { InfluxForwarder } from './adapters/history/influxForwarder.js';
 import { Journal } from './adapters/history/journal.js';
-import { createHttpServer, type HttpServer } from './adapters/http/server.js';
-import type { PlantService } from './adapters/http/service.js';
-import { Announcer } from './adapters/mqtt/announcer.js';
-import { EmbeddedBroker } from './adapters/mqtt/broker.js';
+import { createHttpServer } from './adapters/http/server.js';
+import type { HealthPart, PlantService } from './adapters/http/service.js';
 import { Intake } from './adapters/mqtt/intake.js';
-import { MqttLink } from './adapters/mqtt/link.js';
 import type { SiteConfig } from './config/site.js';
 import type { WatchEvent } from './core/watch/event.js';
 import { type DaemonClock, SteadyClock, wallClock } from './daemon/clock.js';
 import { type Core, realCore } from './daemon/core.js';
 import { Counters } from './daemon/counters.js';
-import { DatabaseWatch } from './daemon/databaseWatch.js';
-import { brokerHealth, databaseHealth, storeHealth, unitHealth } from './daemon/health.js';
+import { DatabasePart } from './daemon/databasePart.js';
+import { brokerHealth, storeHealth, unitHealth } from './daemon/health.js';
+import { Housekeeping } from './daemon/housekeeping.js';
+import { MqttPart } from './daemon/mqttPart.js';
 import { Notices } from './daemon/notices.js';
 import { Pipeline } from './daemon/pipeline.js';
 import { DaemonService } from './daemon/plantService.js';
 import { Questions } from './daemon/questions.js';
 import { type RunnerStep, UnitRunner } from './daemon/unitRunner.js';
-import { withoutCredentials } from './errors.js';
 import type { Log } from './log.js';
 
 export type { PlantService } from './adapters/http/service.js';
@@ -68,11 +65,10 @@ export interface Daemon {
 const CLOCK_TOLERANCE_S = 300;
 /** A longer gap is handed to the core in one, which bridges it itself. */
 const LONGEST_GAP_SCANS = 2000;
-const RETENTION_EVERY_MS = 3_600_000;
-const DATABASE_LOOK_EVERY_MS = 1000;
 /** Readings at the end of the journal that the broker may send again. */
 const REMEMBER_READINGS = 20_000;
-const DAY_MS = 86_400_000;
+/** A replay at the start that is longer than this is told [journal entries]. */
+const LONG_REPLAY = 5000;
 
 /** Builds a daemon from a site; nothing acts before `start`. The one place where all meets. */
 export function createDaemon(site: SiteConfig, options: DaemonOptions): Daemon {
@@ -84,23 +80,17 @@ class RockhourDaemon implements Daemon {
   private readonly log: Log;
   private readonly clock: DaemonClock;
   private readonly counters = new Counters();
-  private readonly notices: Notices;
   private readonly journal: Journal;
   private readonly history: History;
   private readonly questions: Questions;
   private readonly runners: ReadonlyMap<string, UnitRunner>;
   private readonly pipeline: Pipeline;
   private readonly intake: Intake;
-  private readonly poll_ms: number;
+  private readonly mqtt: MqttPart;
+  private readonly database: DatabasePart | null;
+  private readonly housekeeping: Housekeeping;
+  /** What has been started, to be ended in reverse order. */
   private readonly ending: (() => void | Promise<void>)[] = [];
-  private broker: EmbeddedBroker | null = null;
-  private link: MqttLink | null = null;
-  private announcer: Announcer | null = null;
-  private forwarder: InfluxForwarder | null = null;
-  private brokerUrl = '';
-  private refused: string | null = null;
-  /** Scans are closed by the clock only once the broker had a chance to bring what it kept. */
-  private mayClose = false;
   private places: Promise<DaemonPlaces> | null = null;
   private ended: Promise<void> | null = null;
 
@@ -108,32 +98,27 @@ class RockhourDaemon implements Daemon {
     private readonly site: SiteConfig,
     private readonly options: DaemonOptions,
   ) {
+    const { log, version } = options;
     const core = options.core ?? realCore;
-    this.log = options.log;
-    this.clock = options.clock ?? wallClock;
-    this.notices = new Notices(this.log);
-    this.journal = new Journal(join(site.store.folder, 'journal.sqlite'));
-    this.history = new History(join(site.store.folder, 'history.sqlite'), site.store);
+    const clock = options.clock ?? wallClock;
+    const notices = new Notices(log);
+    const { counters } = this;
+    this.log = log;
+    this.clock = clock;
+    const { folder } = site.store;
+    const journal = new Journal(join(folder, 'journal.sqlite'));
+    const history = new History(join(folder, 'history.sqlite'), site.store);
+    this.journal = journal;
+    this.history = history;
     this.questions = new Questions(core, options.configPath);
-    const assembly = {
-      deadline_ms: site.scan_deadline_s * 1000,
-      future_tolerance_ms: (site.clock_tolerance_s ?? CLOCK_TOLERANCE_S) * 1000,
-      longest_gap_scans: LONGEST_GAP_SCANS,
-    };
-    this.runners = new Map(
-      site.units.map((unit) => [unit.id, new UnitRunner(unit, core, assembly)]),
-    );
+    this.runners = makeRunners(site, core);
     const shortest_s = Math.min(...site.units.map((unit) => unit.scan_period_s));
-    this.poll_ms = Math.min(1000, Math.max(20, (shortest_s * 100) / this.clock.speed));
+    const poll_ms = Math.min(1000, Math.max(20, (shortest_s * 100) / clock.speed));
+    const common = { journal, history, clock, counters, notices, log };
     this.pipeline = new Pipeline({
-      journal: this.journal,
-      history: this.history,
+      ...common,
       runners: [...this.runners.values()],
-      clock: this.clock,
-      steady: new SteadyClock(this.clock, 4 * this.poll_ms * this.clock.speed),
-      counters: this.counters,
-      notices: this.notices,
-      log: this.log,
+      steady: new SteadyClock(clock, 4 * poll_ms * clock.speed),
       checkpoint_every_ms: site.store.checkpoint_every_s * 1000,
       stepped: (runner, step) => this.stepped(runner, step),
       event: (event) => this.tellEvent(event),
@@ -141,22 +126,36 @@ class RockhourDaemon implements Daemon {
     this.intake = new Intake({
       units: site.units,
       sources: site.sources,
-      now: () => Math.floor(this.clock.now()),
+      now: () => Math.floor(clock.now()),
       commit: (readings) => {
-        this.journal.append(readings);
+        journal.append(readings);
         this.pipeline.kick();
       },
-      count: (name, by) => this.counters.add(name, by),
-      notice: (kind, text) => this.notices.warn(kind, text),
+      count: (name, by) => counters.add(name, by),
+      notice: (kind, text) => notices.warn(kind, text),
+    });
+    this.mqtt = new MqttPart({
+      ...{ config: site.mqtt, site: site.name, version, intake: this.intake, clock, log },
+      connected: () => this.housekeeping.allowClosing(),
+    });
+    this.database = site.influx
+      ? new DatabasePart({
+          ...common,
+          config: site.influx,
+          units: site.units,
+          event: (event) => this.tellEvent(event),
+        })
+      : null;
+    this.housekeeping = new Housekeeping({
+      ...common,
+      site,
+      pipeline: this.pipeline,
+      poll_ms,
+      forwarded: () => this.database?.cursor ?? Number.POSITIVE_INFINITY,
     });
     this.service = new DaemonService({
-      siteName: site.name,
-      version: options.version,
-      runners: this.runners,
-      history: this.history,
+      ...{ siteName: site.name, version, runners: this.runners, history, counters, clock },
       questions: this.questions,
-      counters: this.counters,
-      clock: this.clock,
       health: () => this.health(),
       acknowledged: (unit) => this.tellStanding(unit, null),
     });
@@ -182,62 +181,84 @@ class RockhourDaemon implements Daemon {
     await this.ended;
   }
 
-  private async end(): Promise<void> {
-    for (let end = this.ending.pop(); end; end = this.ending.pop()) await end();
-  }
-
   caughtUp(): Promise<void> {
     this.intake.flush();
     return this.pipeline.caughtUp();
   }
 
   private async startAll(): Promise<DaemonPlaces> {
-    const lock = new FolderLock(this.site.store.folder);
-    lock.start();
-    this.ending.push(() => lock.stop());
-    await this.startBroker();
-    this.journal.start();
-    this.ending.push(() => this.journal.stop());
-    this.history.start();
-    this.ending.push(() => this.history.stop());
+    const { site, mqtt, journal, history, pipeline, database, housekeeping } = this;
+    const { folder } = site.store;
+    const lock = new FolderLock(folder);
+    await this.begin(
+      () => lock.start(),
+      () => lock.stop(),
+    );
+    await this.begin(
+      () => mqtt.startBroker(),
+      () => mqtt.stopBroker(),
+    );
+    await this.begin(
+      () => journal.start(),
+      () => journal.stop(),
+    );
+    await this.begin(
+      () => history.start(),
+      () => history.stop(),
+    );
     this.ending.push(() => this.questions.stop());
-    await this.startPipeline();
+    await this.begin(
+      () => this.replay(),
+      () => pipeline.stop(),
+    );
     const url = this.options.http === false ? null : await this.startHttp();
-    this.startForwarder();
-    this.startLink();
-    this.startTimers();
-    return { url, broker: withoutCredentials(this.brokerUrl), folder: this.site.store.folder };
+    if (database) {
+      await this.begin(
+        () => database.start(),
+        () => database.stop(),
+      );
+    }
+    this.restate();
+    await this.begin(
+      () => mqtt.startLink(),
+      () => mqtt.stopLink(),
+    );
+    await this.begin(
+      () => housekeeping.start(),
+      () => housekeeping.stop(),
+    );
+    return { url, broker: mqtt.name, folder };
   }
 
-  private async startBroker(): Promise<void> {
-    const { url, embedded_host, embedded_port } = this.site.mqtt;
-    this.brokerUrl = url ?? '';
-    if (url !== null) return;
-    const broker = new EmbeddedBroker(embedded_host, embedded_port);
-    await broker.start();
-    this.ending.push(() => broker.stop());
-    this.broker = broker;
-    this.brokerUrl = broker.url;
+  private async begin(
+    start: () => void | Promise<void>,
+    end: () => void | Promise<void>,
+  ): Promise<void> {
+    // Before the start: what fails half-way is ended as well, and every end may come without one.
+    this.ending.push(end);
+    await start();
   }
 
-  private async startPipeline(): Promise<void> {
-    const { journal } = this;
-    const from = Math.max(0, journal.lastSeq - REMEMBER_READINGS);
-    for (let seq = from; seq < journal.lastSeq; ) {
+  private async end(): Promise<void> {
+    for (let end = this.ending.pop(); end; end = this.ending.pop()) await end();
+  }
+
+  /** Restores the units and takes in what the journal has since. */
+  private async replay(): Promise<void> {
+    const { journal, intake, pipeline } = this;
+    for (let seq = Math.max(0, journal.lastSeq - REMEMBER_READINGS); seq < journal.lastSeq; ) {
       const entries = journal.read(seq, 1000);
       seq = entries.at(-1)?.seq ?? journal.lastSeq;
-      this.intake.remember(entries.filter((entry) => entry.kind === 'reading'));
+      intake.remember(entries.filter((entry) => entry.kind === 'reading'));
     }
-    this.intake.start();
-    this.pipeline.start();
-    this.ending.push(() => this.pipeline.stop());
-    const { backlog } = this.pipeline;
-    if (backlog > 5000) this.log.info(`replays ${backlog} entries of the journal`);
-    await this.pipeline.caughtUp();
+    pipeline.start();
+    const { backlog } = pipeline;
+    if (backlog > LONG_REPLAY) this.log.info(`replays ${backlog} entries of the journal`);
+    await pipeline.caughtUp();
   }
 
   private async startHttp(): Promise<string> {
-    const server: HttpServer = createHttpServer(this.service, this.site.http, {
+    const server = createHttpServer(this.service, this.site.http, {
       log: this.log,
       pageFolder: pageFolder(),
     });
@@ -245,136 +266,21 @@ class RockhourDaemon implements Daemon {
     return (await server.start()).url;
   }
 
-  private startLink(): void {
-    const { mqtt, name } = this.site;
-    const link = new MqttLink({
-      url: this.brokerUrl,
-      client_id: mqtt.client_id,
-      username: mqtt.username,
-      password: mqtt.password,
-      // The embedded broker speaks 3.1.1 only.
-      protocol: this.broker ? 4 : mqtt.protocol,
-      qos: mqtt.qos,
-      topics: this.intake.topics,
-      will: Announcer.will(mqtt.out_prefix),
-      receive: (delivery) => this.intake.receive(delivery),
-      up: () => this.linkUp(),
-      down: (reason) =>
-        this.log.warn(
-          `no connection to the MQTT broker ${withoutCredentials(this.brokerUrl)}: ${reason}; rockhour keeps trying`,
-        ),
-      refused: (reason) => {
-        this.refused = reason;
-        this.log.error(`the MQTT broker refused a subscription: ${reason}`);
-      },
-    });
-    this.link = link;
-    this.announcer = new Announcer(link, {
-      prefix: mqtt.out_prefix,
-      version: this.options.version,
-      site: name,
-      now: () => this.clock.now(),
-    });
-    this.restate();
-    this.announcer.start();
-    link.start();
-    this.ending.push(async () => {
-      this.intake.stop();
-      this.announcer?.stop();
-      await link.stop();
-    });
-  }
-
-  private linkUp(): void {
-    this.mayClose = true;
-    this.refused = null;
-    this.log.info(`connected to the MQTT broker ${withoutCredentials(this.brokerUrl)}`);
-    this.announcer?.connected();
-  }
-
   /** What was last said before this start is said again. */
   private restate(): void {
+    const { announcer } = this.mqtt;
     for (const [id, { view }] of this.runners) {
-      if (view.estimate) this.announcer?.state(view.estimate);
-      if (view.dispatch) this.announcer?.dispatch(id, view.dispatch.time, view.dispatch.answers);
+      if (view.estimate) announcer.state(view.estimate);
+      if (view.dispatch) announcer.dispatch(id, view.dispatch.time, view.dispatch.answers);
       this.tellStanding(id, null);
-    }
-  }
-
-  private startForwarder(): void {
-    const { influx: config, units } = this.site;
-    if (!config) return;
-    const forwarder = new InfluxForwarder({
-      config,
-      outbox: () => this.history.outbox,
-      count: (name, by) => this.counters.add(name, by),
-      down: (reason) =>
-        this.log.warn(
-          `InfluxDB at ${config.url} cannot be written to: ${reason}; what is due waits in the local store`,
-        ),
-      up: () => this.log.info(`InfluxDB at ${config.url} is written to again`),
-      refused: (reason) => this.notices.warn('influx_set_aside', `a point was refused: ${reason}`),
-    });
-    this.forwarder = forwarder;
-    const stands = this.history.events.standing().flatMap(({ id, state }) => {
-      return state === 'returned_unacknowledged' ? [] : [id];
-    });
-    const watch = new DatabaseWatch(units, new Set(stands));
-    forwarder.start();
-    this.ending.push(() => forwarder.stop());
-    this.every(DATABASE_LOOK_EVERY_MS / Math.max(1, this.clock.speed), () => {
-      // Nothing has been tried yet: neither up nor down.
-      if (!forwarder.proven && forwarder.trouble === null) return;
-      for (const event of watch.step(this.clock.now(), forwarder.trouble)) {
-        if (this.history.write(() => this.history.events.add(event))) this.tellEvent(event);
-      }
-    });
-  }
-
-  private startTimers(): void {
-    this.every(this.poll_ms, () => {
-      if (this.mayClose) this.pipeline.closeDue();
-    });
-    const patience_s = Math.max(...this.site.units.map((unit) => unit.watch.data_age_s.limit));
-    const patience = setTimeout(
-      () => {
-        this.mayClose = true;
-      },
-      (patience_s * 1000) / Math.max(1, this.clock.speed),
-    );
-    this.ending.push(() => clearTimeout(patience));
-    this.every(RETENTION_EVERY_MS, () => this.retain());
-  }
-
-  /** Repeats an action until the stop. */
-  private every(ms: number, action: () => void): void {
-    const timer = setInterval(action, Math.max(10, ms));
-    this.ending.push(() => clearInterval(timer));
-  }
-
-  private retain(): void {
-    const now_ms = Math.floor(this.clock.now());
-    const { store, units } = this.site;
-    try {
-      const forwarded = this.forwarder ? this.history.outbox.cursor : Number.POSITIVE_INFINITY;
-      const { estimates, not_forwarded } = this.history.retain(now_ms, forwarded);
-      this.counters.add('estimates_thinned', estimates);
-      this.counters.add('estimates_not_forwarded', not_forwarded);
-      const old = this.journal.seqBefore(now_ms - store.keep_readings_days * DAY_MS);
-      const covered = this.history.checkpoints.coveredSeq(units.map((unit) => unit.id));
-      this.journal.forget(Math.min(old, covered));
-    } catch (thrown) {
-      this.counters.add('history_failures');
-      this.notices.warn('history_failures', thrown instanceof Error ? thrown.message : '');
     }
   }
 
   private stepped(runner: UnitRunner, { step }: RunnerStep): void {
     const { estimate } = step;
-    this.announcer?.state(estimate);
-    if (estimate.dispatch) {
-      this.announcer?.dispatch(estimate.unit, estimate.time, estimate.dispatch);
-    }
+    const { announcer } = this.mqtt;
+    announcer.state(estimate);
+    if (estimate.dispatch) announcer.dispatch(estimate.unit, estimate.time, estimate.dispatch);
     this.service.tell({ kind: 'state', unit: runner.unit.id });
   }
 
@@ -389,22 +295,31 @@ class RockhourDaemon implements Daemon {
   private tellStanding(unit: string, last: WatchEvent | null): void {
     const time = last?.time ?? new Date(this.clock.now()).toISOString();
     const standing = this.history.events.standing(unit);
-    this.announcer?.alarms({ time, unit, standing, last });
+    this.mqtt.announcer.alarms({ time, unit, standing, last });
   }
 
-  private health() {
+  private health(): HealthPart[] {
+    const { mqtt, pipeline, clock } = this;
     const { folder } = this.site.store;
-    const url = withoutCredentials(this.brokerUrl);
     const failures = this.counters.get('history_failures');
     return [
-      brokerHealth(url, this.link?.connected ?? false, this.refused),
-      storeHealth(folder, this.intake.stuck, this.pipeline.backlog, failures),
-      ...(this.forwarder ? [databaseHealth(this.forwarder, this.history.outbox)] : []),
+      brokerHealth(mqtt.name, mqtt.isConnected, mqtt.refused),
+      storeHealth(folder, this.intake.stuck, pipeline.backlog, failures),
+      ...(this.database ? [this.database.health] : []),
       ...[...this.runners.values()].map((runner) =>
-        unitHealth(runner, this.pipeline.failures.get(runner.unit.id), this.clock),
+        unitHealth(runner, pipeline.failures.get(runner.unit.id), clock),
       ),
     ];
   }
+}
+
+function makeRunners(site: SiteConfig, core: Core): ReadonlyMap<string, UnitRunner> {
+  const assembly = {
+    deadline_ms: site.scan_deadline_s * 1000,
+    future_tolerance_ms: (site.clock_tolerance_s ?? CLOCK_TOLERANCE_S) * 1000,
+    longest_gap_scans: LONGEST_GAP_SCANS,
+  };
+  return new Map(site.units.map((unit) => [unit.id, new UnitRunner(unit, core, assembly)]));
 }
 
 /** The built page: beside this file once compiled, else where the build puts it. */

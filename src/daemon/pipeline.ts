@@ -6,14 +6,13 @@ import type { Log } from '../log.js';
 import type { DaemonClock, SteadyClock } from './clock.js';
 import type { Counters } from './counters.js';
 import type { Notices } from './notices.js';
+import { restoreRunner } from './restore.js';
 import type { RunnerStep, UnitRunner } from './unitRunner.js';
 
 /** Work in one go, after which messages and questions have their turn [ms]. */
 const SLICE_MS = 25;
 /** Journal entries read at a time. */
 const PAGE = 512;
-/** Of a unit without a usable checkpoint, this much of the journal is run again [ms of arrival]. */
-const AFRESH_MS = 86_400_000;
 /** After a failure to read the journal [ms]. */
 const RETRY_MS = 1000;
 
@@ -59,7 +58,7 @@ export class Pipeline {
     this.running = true;
     const { runners, journal } = this.options;
     this.liveFrom = journal.lastSeq + 1;
-    for (const runner of runners) this.restore(runner);
+    for (const runner of runners) restoreRunner(runner, this.options);
     this.seq = Math.min(journal.lastSeq, ...runners.map((runner) => runner.seq));
     // A stop may have come amid the scans of a long gap.
     this.busy = [...runners];
@@ -117,41 +116,6 @@ export class Pipeline {
   caughtUp(): Promise<void> {
     if (this.backlog === 0) return Promise.resolve();
     return new Promise((resolve) => this.idle.push(resolve));
-  }
-
-  private restore(runner: UnitRunner): void {
-    const { history, log, journal, clock } = this.options;
-    const { id } = runner.unit;
-    for (const checkpoint of history.checkpoints.list(runner.unit)) {
-      if (checkpoint.journal_seq > journal.lastSeq) continue;
-      try {
-        runner.restore(checkpoint);
-        Object.assign(runner.view, {
-          estimate: history.estimates.latest(id),
-          profile: history.estimates.latestProfile(id),
-          dispatch: history.estimates.latestDispatch(id),
-        });
-        return;
-      } catch (thrown) {
-        log.warn({ unit: id }, `a checkpoint cannot be used: ${reasonOf(thrown)}`);
-      }
-    }
-    const from = journal.lastSeq === 0 ? 0 : journal.seqBefore(clock.now() - AFRESH_MS);
-    runner.startAt(from);
-    if (journal.lastSeq === 0 || !history.checkpoints.hasAny(id)) return;
-    log.warn({ unit: id }, 'no checkpoint fits: starts afresh from the last day of the journal');
-    this.returnOrphans(id);
-  }
-
-  /** What stood under the old state would stand for ever: the new one never raised it. */
-  private returnOrphans(unit: string): void {
-    const { history, clock } = this.options;
-    for (const { state, acknowledged_by: _, ...event } of history.events.standing(unit)) {
-      if (state === 'returned_unacknowledged' || event.kind === 'database_unreachable') continue;
-      const time = new Date(clock.now()).toISOString();
-      const message = 'The estimator was started afresh; raised again where it still holds.';
-      history.events.add({ ...event, transition: 'returned', time, message });
-    }
   }
 
   private slice(): void {

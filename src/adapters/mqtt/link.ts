@@ -15,7 +15,8 @@ export interface Delivery {
 }
 
 export interface LinkOptions {
-  readonly url: string;
+  /** Asked at each start. */
+  url(): string;
   readonly client_id: string;
   readonly username: string | null;
   readonly password: string | null;
@@ -72,7 +73,7 @@ export class MqttLink {
 
   start(): void {
     if (this.client) return;
-    const client = connect(this.options.url, clientOptions(this.options));
+    const client = connect(this.options.url(), clientOptions(this.options));
     this.client = client;
     client.handleMessage = (packet, done) => this.take(packet as IPublishPacket, done);
     client.on('connect', () => this.subscribe(client));

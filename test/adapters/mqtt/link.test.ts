@@ -27,7 +27,7 @@ interface Harness {
 function startLink(url: string, options: Partial<LinkOptions> = {}): Harness {
   const harness: Omit<Harness, 'link'> = { came: [], ups: 0, downs: [], refusals: [] };
   const link = new MqttLink({
-    url,
+    url: () => url,
     client_id: 'under-test',
     username: null,
     password: null,

@@ -1,0 +1,108 @@
+import { Announcer } from '../adapters/mqtt/announcer.js';
+import { EmbeddedBroker } from '../adapters/mqtt/broker.js';
+import type { Intake } from '../adapters/mqtt/intake.js';
+import { MqttLink } from '../adapters/mqtt/link.js';
+import type { MqttConfig } from '../config/site.js';
+import { withoutCredentials } from '../errors.js';
+import type { Log } from '../log.js';
+import type { DaemonClock } from './clock.js';
+
+export interface MqttPartOptions {
+  readonly config: MqttConfig;
+  readonly site: string;
+  readonly version: string;
+  readonly intake: Intake;
+  readonly clock: DaemonClock;
+  readonly log: Log;
+  /** The broker can be reached, at the start and after each outage. */
+  connected(): void;
+}
+
+/** Everything about the broker: the embedded one where none is named, the link, what is said. */
+export class MqttPart {
+  readonly announcer: Announcer;
+  private readonly link: MqttLink;
+  private readonly broker: EmbeddedBroker | null;
+  private refusal: string | null = null;
+
+  constructor(private readonly options: MqttPartOptions) {
+    const { config, intake } = options;
+    const { embedded_host, embedded_port, url } = config;
+    this.broker = url === null ? new EmbeddedBroker(embedded_host, embedded_port) : null;
+    this.link = new MqttLink({
+      // Asked for at the start: the port of an embedded broker is known only then.
+      url: () => this.url,
+      client_id: config.client_id,
+      username: config.username,
+      password: config.password,
+      // The embedded broker speaks 3.1.1 only.
+      protocol: this.broker ? 4 : config.protocol,
+      qos: config.qos,
+      topics: intake.topics,
+      will: Announcer.will(config.out_prefix),
+      receive: (delivery) => intake.receive(delivery),
+      up: () => this.up(),
+      down: (reason) =>
+        options.log.warn(
+          `no connection to the MQTT broker ${this.name}: ${reason}; rockhour keeps trying`,
+        ),
+      refused: (reason) => {
+        this.refusal = reason;
+        options.log.error(`the MQTT broker refused a subscription: ${reason}`);
+      },
+    });
+    this.announcer = new Announcer(this.link, {
+      prefix: config.out_prefix,
+      version: options.version,
+      site: options.site,
+      now: () => options.clock.now(),
+    });
+  }
+
+  /** Address of the broker without name and password. */
+  get name(): string {
+    return withoutCredentials(this.url);
+  }
+
+  get isConnected(): boolean {
+    return this.link.connected;
+  }
+
+  /** Why the broker refused a subscription, null where it did not. */
+  get refused(): string | null {
+    return this.refusal;
+  }
+
+  /** @throws RockhourError PORT_IN_USE */
+  async startBroker(): Promise<void> {
+    await this.broker?.start();
+  }
+
+  async stopBroker(): Promise<void> {
+    await this.broker?.stop();
+  }
+
+  startLink(): void {
+    this.options.intake.start();
+    this.announcer.start();
+    this.link.start();
+  }
+
+  /** What has come in is committed and acknowledged, the farewell said, then the link ended. */
+  async stopLink(): Promise<void> {
+    this.options.intake.stop();
+    this.announcer.stop();
+    await this.link.stop();
+  }
+
+  private get url(): string {
+    return this.broker?.url ?? this.options.config.url ?? '';
+  }
+
+  private up(): void {
+    this.refusal = null;
+    this.options.log.info(`connected to the MQTT broker ${this.name}`);
+    this.announcer.connected();
+    this.options.connected();
+  }
+}
