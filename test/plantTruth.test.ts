@@ -75,7 +75,7 @@ describe('the truth', () => {
   });
 
   it('counts hours that do not depend on the step of the look ahead', () => {
-    const a = plant({ initial: HALF_CHARGED, resolution: { cells: 200, shells: 3 } });
+    const a = plant({ initial: HALF_CHARGED });
     a.run([{ mode: 'charge', power_W: 2.5e6, duration_s: H }]);
     for (const power of [1.08e6, 1.8e6]) {
       const fine = a.hoursAt(power, 10).hours;

@@ -21,29 +21,42 @@ export function trueHours(
   const ahead = room.clone();
   const dt = step_s;
   const { geometry } = room;
+  const limits = [
+    ['hot_outlet', geometry.hot_outlet_min_K, -1],
+    ['cold_outlet', geometry.cold_outlet_max_K, 1],
+  ] as const;
   let seconds = 0;
   let before = ahead.outlets(false);
   let flowBefore = Number.NaN;
   while (seconds < horizon_h * 3600) {
     const { flow_kg_s, end } = ahead.stepAhead(power_W, dt);
-    if (end === 'empty' || end === 'flow') {
-      const late = (flow_kg_s - geometry.flow_max_kg_s) / (flow_kg_s - flowBefore);
-      return hoursOf(Number.isFinite(late) ? seconds + dt * (0.5 - late) : seconds, power_W, end);
-    }
-    const now = ahead.outlets(false);
     if (end !== null) {
-      const [limit, was, is] =
-        end === 'hot_outlet'
-          ? [geometry.hot_outlet_min_K!, before[0], now[0]]
-          : [geometry.cold_outlet_max_K!, before[1], now[1]];
-      const share = is === was ? 1 : (limit - was) / (is - was);
-      return hoursOf(seconds + dt * (Math.min(Math.max(share, 0), 1) - 0.5), power_W, end);
+      const beforeStep = end === 'flow' || end === 'empty';
+      if (beforeStep && seconds === 0) return hoursOf(0, power_W, end);
+      // Shares of the way from the middle of the last step to that of this one; the first rule counts.
+      const now = beforeStep ? ahead.comingOutlets(false) : ahead.outlets(false);
+      let first: EndedBy = end;
+      let share = beforeStep ? passed(flowBefore, flow_kg_s, geometry.flow_max_kg_s) : 1;
+      limits.forEach(([rule, limit, sign], j) => {
+        if (limit === null || !ahead.swept || !(sign * (now[j]! - limit) > 0)) return;
+        const own = passed(before[j]!, now[j]!, limit);
+        if (own > share) return;
+        share = own;
+        first = rule;
+      });
+      return hoursOf(seconds + dt * (share - 0.5), power_W, first);
     }
-    before = now;
+    before = ahead.outlets(false);
     flowBefore = flow_kg_s;
     seconds += dt;
   }
   return hoursOf(seconds, power_W, 'empty');
+}
+
+/** Where between `from` and `to` a limit lies, 0..1; 1 where that cannot be told. */
+function passed(from: number, to: number, limit: number): number {
+  const share = (limit - from) / (to - from);
+  return Number.isFinite(share) ? Math.min(Math.max(share, 0), 1) : 1;
 }
 
 function hoursOf(seconds: number, power_W: number, ends_by: EndedBy): TrueHours {

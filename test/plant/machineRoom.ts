@@ -143,6 +143,11 @@ export class MachineRoom {
     return point;
   }
 
+  /** Whether the gas that stood under the lids has been pushed out. */
+  get swept(): boolean {
+    return this.sinceChange_s >= SWEEP_S;
+  }
+
   /** Gas that leaves the hot and the cold store in a direction [K]; NaN for a store there is not. */
   outlets(charging: boolean): [hot: number, cold: number] {
     let hot = Number.NaN;
@@ -159,9 +164,9 @@ export class MachineRoom {
    * that of the middle of its step), so that machine and stores do not lag each other by a step.
    * While the plenum is being swept, the last one.
    */
-  private comingOutlets(charging: boolean): [hot: number, cold: number] {
+  comingOutlets(charging: boolean): [hot: number, cold: number] {
     const now = this.outlets(charging);
-    if (this.sinceChange_s < SWEEP_S) return now;
+    if (!this.swept) return now;
     const on = (a: number, b: number) => (Number.isNaN(b) ? a : 2 * a - b);
     return [on(now[0], this.outletsBefore[0]), on(now[1], this.outletsBefore[1])];
   }
@@ -202,7 +207,7 @@ export class MachineRoom {
     const { geometry } = this;
     const [hot, cold] = this.outlets(charging);
     if (!charging && target > geometry.flow_max_kg_s) return 'flow';
-    if (this.sinceChange_s < SWEEP_S) return null;
+    if (!this.swept) return null;
     const over = (limit: number | null, value: number) => limit !== null && value > limit;
     const under = (limit: number | null, value: number) => limit !== null && value < limit;
     if (charging) {
