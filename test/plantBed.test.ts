@@ -103,7 +103,7 @@ describe("the finer plant's bed", () => {
     const fine = schumannError(400);
     // Straight lines between centres and the box scheme are of second order: halving gives a quarter.
     expect(fine.all).toBeLessThan(coarse.all / 3);
-    // CHECKS: below 0.002 in theta at 200 cells and tau 100.
+    // Asked of the estimator's own bed too: below 0.002 in theta at 200 cells and tau 100.
     expect(coarse.late).toBeLessThan(0.002);
     expect(coarse.late).toBeGreaterThan(0);
   });
@@ -162,7 +162,7 @@ describe("the finer plant's bed", () => {
     );
     bed.fill(() => 563);
     for (let n = 0; n < 360; n++) bed.step(20, 7, 669, 563);
-    // Plug flow of CHECKS' thermocline: 2.773e6 J/m3K at 7.0 kg/s gives 1.944 m/h.
+    // Plug flow of Pacheco's thermocline (2002): 2.773e6 J/m3K at 7.0 kg/s gives 1.944 m/h.
     const front = frontsOf(bed.mean, bed.c.cellLength_m, 563, 669)[0]!;
     // Shape moves the 0.5 crossing by half a transfer length, under 2 cm here.
     expect(Math.abs(front.position_m - 2 * 1.944)).toBeLessThan(0.02);
