@@ -20,12 +20,14 @@ interface ReplayOptions {
 }
 
 /**
- * Says at which scans which powers are asked for: at the first, then once per interval. Without
- * options it is what the daemon asks by itself.
+ * Says at which scans which powers are asked for: at the first, then once per interval; without
+ * options none. --hours-every alone asks the powers of the configuration.
  */
 function asker(unit: UnitDefinition, options: ReplayOptions) {
   const { hoursAt, hoursEvery } = options;
-  const powers_W = hoursAt === undefined ? unit.hours_at_W : parsePowers_W('--hours-at', hoursAt);
+  const asked = hoursAt !== undefined || hoursEvery !== undefined;
+  const own = asked ? unit.hours_at_W : [];
+  const powers_W = hoursAt === undefined ? own : parsePowers_W('--hours-at', hoursAt);
   if (hoursEvery !== undefined && powers_W.length === 0) {
     throw new RockhourError(
       'USAGE',

@@ -133,7 +133,7 @@ describe('measured rock bed, charged with hot air from uniform', () => {
   it.each([
     [3600, 0.42],
     [7200, 0.84],
-  ])('finds the 50 %% front after %i s at %f m with the sensors', (t, x) => {
+  ])('finds the half front after %i s at %f m with the sensors', (t, x) => {
     const { store } = storeAt(airRun(true), t);
     expect(Math.abs((store.fronts[0]?.position_m ?? 0) - x)).toBeLessThan(0.06);
   });

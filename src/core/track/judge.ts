@@ -14,6 +14,8 @@ export interface SensorMemory {
   firstOutside_K: number;
   /** Scans in a row that a rejected sensor has looked sound. */
   sound: number;
+  /** Times that the value changed since the verdict, capped at SOUND_SCANS. */
+  changes: number;
 }
 
 export function freshSensor(): SensorMemory {
@@ -27,6 +29,7 @@ export function freshSensor(): SensorMemory {
     outside: 0,
     firstOutside_K: 0,
     sound: 0,
+    changes: 0,
   };
 }
 
@@ -44,6 +47,8 @@ export interface SensorEvidence {
   readonly deadband_K: number;
   /** Range of temperatures that the plant can produce [K]. */
   readonly range_K: readonly [number, number];
+  /** Sensors beside it deviate to the same side: the profile is off there, not the sensor. */
+  readonly supported: boolean;
 }
 
 /** Scans and limits of the judgement. */
@@ -51,24 +56,28 @@ export const GATE_SIGMAS = 4.5;
 const OUTSIDE_SCANS = 5;
 const SOUND_SIGMAS = 3;
 const SOUND_SCANS = 20;
-const STUCK_S = 1800;
+const STUCK_S = 600;
+/** A stuck sensor must have moved this often again before it is believed. */
+const STUCK_CHANGES = 5;
 const STUCK_MIN_MOVE_K = 4;
 /** A reading that repeats within this is unchanged: below the resolution of usual input cards. */
 const UNCHANGED_K = 0.01;
 
-export type Judgement = 'use' | 'leave_out';
+/** `soften`: use it with its variance enlarged, since it deviates far but is borne out by others. */
+export type Judgement = 'use' | 'soften' | 'leave_out';
 
 /**
  * Judges one thermocouple in one scan: whether its reading may be used, and its verdict.
  *
  * - `open`: missing while others of the store deliver; ends with the next reading.
  * - `burst`: outside the range that the plant can produce.
- * - `stuck`: unchanged for 30 min while the rock beside it is predicted to have moved by more than
- *   4 K and six sigma of the innovation. A value that is rightly steady is never stuck.
- * - `offset` / `drifting`: five scans in a row outside 4.5 sigma; drifting where the innovation
- *   grew by a third or more since the first of them.
+ * - `stuck`: unchanged for 10 min or more while the rock beside it is predicted to have moved by more
+ *   than 4 K and six sigma of the innovation. A value that is rightly steady is never stuck.
+ * - `offset` / `drifting`: five scans in a row outside 4.5 sigma without support from the sensors
+ *   beside it; drifting where the innovation grew by a third or more since the first of them.
  *
- * A rejected sensor returns after 20 scans in a row within 3 sigma.
+ * A rejected sensor returns after 20 scans in a row within 3 sigma; a stuck one must also have
+ * changed its value again, since the rock passes its frozen value twice in every cycle.
  */
 export function judgeSensor(memory: SensorMemory, evidence: SensorEvidence): Judgement {
   const { value_K: value, time_ms } = evidence;
@@ -94,7 +103,8 @@ export function judgeSensor(memory: SensorMemory, evidence: SensorEvidence): Jud
   if (memory.verdict === null) return judgeSound(memory, evidence, innovation, within);
   if (Math.abs(innovation) <= SOUND_SIGMAS * evidence.sigma_K && !isStuck(memory, evidence)) {
     memory.sound++;
-    if (memory.sound >= SOUND_SCANS) clear(memory);
+    const moves = memory.verdict !== 'stuck' || memory.changes >= STUCK_CHANGES;
+    if (memory.sound >= SOUND_SCANS && moves) clear(memory);
   } else memory.sound = 0;
   return 'leave_out';
 }
@@ -116,9 +126,9 @@ function judgeSound(
     );
     return 'leave_out';
   }
-  if (within) {
+  if (within || evidence.supported) {
     memory.outside = 0;
-    return 'use';
+    return within ? 'use' : 'soften';
   }
   if (memory.outside === 0) memory.firstOutside_K = innovation;
   memory.outside++;
@@ -141,6 +151,7 @@ function followChange(memory: SensorMemory, evidence: SensorEvidence): void {
     memory.last_K = evidence.value_K;
     memory.changed_ms = evidence.time_ms;
     memory.predictedAtChange_K = evidence.predicted_K;
+    if (memory.verdict !== null && memory.changes < SOUND_SCANS) memory.changes++;
   }
 }
 
@@ -160,6 +171,12 @@ function set(
   memory.since_ms = time_ms;
   memory.evidence = evidence;
   memory.sound = 0;
+  memory.changes = 0;
+}
+
+/** Rejects a sensor for what its whole group shows; see groupFaults. */
+export function rejectWithGroup(memory: SensorMemory, time_ms: number, evidence: string): void {
+  if (memory.verdict === null) set(memory, 'group_fault', time_ms, evidence);
 }
 
 function clear(memory: SensorMemory): void {

@@ -127,6 +127,8 @@ export interface AcceptedReading {
   readonly reading: ReadingModel;
   readonly v: Float64Array;
   readonly innovation_K: number;
+  /** Variance R of the reading's own error [K2]. */
+  readonly variance_K2: number;
 }
 
 /**
@@ -198,10 +200,10 @@ function innovationFactor(model: TubeModel, accepted: readonly AcceptedReading[]
   const m = accepted.length;
   const s = new Float64Array(m * m);
   for (let a = 0; a < m; a++) {
-    const { sensor, reading } = accepted[a] as AcceptedReading;
+    const { sensor, reading, variance_K2 } = accepted[a] as AcceptedReading;
     for (let b = 0; b <= a; b++) {
       let value = observe(model, sensor, reading, (accepted[b] as AcceptedReading).v);
-      if (a === b) value += readingVariance(model, reading);
+      if (a === b) value += variance_K2;
       for (let c = 0; c < b; c++) value -= (s[a * m + c] as number) * (s[b * m + c] as number);
       s[a * m + b] = a === b ? Math.sqrt(value) : value / (s[b * m + b] as number);
     }

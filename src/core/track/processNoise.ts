@@ -11,7 +11,8 @@ import type { TubeDrive, TubeModel, TubeScratch, TubeState } from './tube.js';
  *   travelled, correlated over SHAPE_LENGTH: (dT/dx)^2 kappa^2 |v| dt;
  * - standing: heat between tubes, natural convection and uncertain losses, as a slow walk of each
  *   temperature that grows with its distance from ambient;
- * - slow walks of flow, transfer and gas-share factors; offsets are first-order Gauss-Markov.
+ * - slow walks of flow, transfer and gas-share factors, faster while the tube is surprised; offsets
+ *   are first-order Gauss-Markov.
  *
  * Scaled by dt, so a scan in parts adds the same as one in whole.
  */
@@ -24,6 +25,13 @@ const FLOW_WALK_PER_SQRT_H = 0.01;
 const TRANSFER_WALK_PER_SQRT_H = 0.03;
 const SHARE_WALK_PER_SQRT_H = 0.02;
 const HOUR_S = 3600;
+/**
+ * Where the innovations of a tube are on average more than this times larger than expected (their
+ * squares), the bed behaves as no healthy one: shape and transfer noise grow with the surprise, so
+ * that a front that degrades within the hour is followed rather than its sensors doubted.
+ */
+const ADAPT_FROM = 2;
+const ADAPT_MOST = 30;
 
 export function addProcessNoise(
   model: TubeModel,
@@ -45,11 +53,12 @@ export function addProcessNoise(
   }
   const hours = drive.dt_s / HOUR_S;
   const flowing = drive.massFlux_kg_m2s !== 0;
+  const adapt = Math.min(ADAPT_MOST, Math.max(1, state.surprise / ADAPT_FROM));
   if (flowing) {
     // White over FLOW_CORRELATION_S: the scan's share of variance is 2 tau/dt of the band's.
     const scale = FLOW_NOISE * Math.sqrt(Math.max(1, (2 * FLOW_CORRELATION_S) / drive.dt_s));
     addRankOne(p, size, cells, scratch.flowColumn, scale * scale);
-    addShapeNoise(p, size, cells, dx, slope, travelOf(model, state, drive));
+    addShapeNoise(p, size, cells, dx, slope, adapt * travelOf(model, state, drive));
   }
   if (drive.travelSigma_m > 0) {
     addRankOne(p, size, cells, slope, drive.travelSigma_m * drive.travelSigma_m * drive.scans);
@@ -65,7 +74,7 @@ export function addProcessNoise(
   }
   if (flowing) {
     walk(p, size, layout.flow, FLOW_WALK_PER_SQRT_H ** 2 * hours);
-    walk(p, size, layout.transfer, TRANSFER_WALK_PER_SQRT_H ** 2 * hours);
+    walk(p, size, layout.transfer, adapt * adapt * TRANSFER_WALK_PER_SQRT_H ** 2 * hours);
     walk(p, size, layout.share, SHARE_WALK_PER_SQRT_H ** 2 * hours);
   }
   const decay = Math.exp(-drive.dt_s / estimator.offset_time_s);

@@ -23,6 +23,7 @@ export function blankTube(model: TubeModel): TubeState {
     covariance: new Float64Array(layout.size * layout.size),
     gasLag_m: new Float64Array(layout.cells),
     outlet_K: Number.NaN,
+    surprise: 1,
   };
   const { reference_hot_K: hot, reference_cold_K: cold } = model.store;
   const middle = new Float64Array(layout.cells).fill((hot + cold) / 2);

@@ -1,14 +1,13 @@
 import { enthalpyAt, fluidEnthalpyAt } from '../bed/tables.js';
-import type { FrontEstimate, FrontViewEstimate } from '../estimate.js';
+import type { FrontEstimate, FrontViewEstimate, SensorVerdict } from '../estimate.js';
 import {
-  type SpreadRatio,
-  spreadRatio,
   startTwin,
   stepTwin,
   type TwinModel,
   type TwinState,
   twinModel,
 } from '../watch/healthyTwin.js';
+import { type SpreadRatio, spreadRatio } from '../watch/spreadRatio.js';
 import {
   disagreement,
   type FrontViewState,
@@ -97,10 +96,9 @@ export function stepViews(
     const lasting = Math.hypot(estimator.offset_sigma_K, estimator.group_offset_sigma_K);
     const readings = tube.string.thermocouples.map((thermocouple, s) => ({
       x_m: thermocouple.position_m,
-      temperature_K:
-        state.sensors[k]?.[s]?.verdict === null
-          ? (values[model.channels[k]?.[s] as number] as number)
-          : Number.NaN,
+      temperature_K: mayShowFront(state.sensors[k]?.[s]?.verdict ?? null)
+        ? (values[model.channels[k]?.[s] as number] as number)
+        : Number.NaN,
       sigma_K: estimator.reading_sigma_K,
       lasting_K: lasting,
       place_m: estimator.position_sigma_m,
@@ -115,16 +113,26 @@ export function stepViews(
       travel_m: motion.travel_m,
       travelSigma_m: Math.hypot(TRAVEL_SHARE * motion.travel_m, drive?.travelSigma_m ?? 0),
       spread_m2: motion.spread_m2,
+      readingShift_m: estimator.gas_share * motion.lag_m,
+      readingShiftSigma_m: estimator.gas_share_sigma * Math.abs(motion.lag_m),
     });
   });
 }
 
-/** Travel by the metered flow and growth of width squared that the configured bed would show. */
+/**
+ * Verdicts drawn from the tubes' prediction do not keep a reading from the front view: it would lose
+ * its independence where a front degrades faster than the tubes follow. It judges for itself.
+ */
+function mayShowFront(verdict: SensorVerdict | null): boolean {
+  return verdict === null || verdict === 'offset' || verdict === 'drifting';
+}
+
+/** Travel by the metered flow, signed gas lag, and growth of width squared that the configured bed would show. */
 function expectedMotion(
   model: StoreModel,
   drive: TubeDrive | null,
-): { travel_m: number; spread_m2: number } {
-  if (drive === null) return { travel_m: 0, spread_m2: 0 };
+): { travel_m: number; spread_m2: number; lag_m: number } {
+  if (drive === null) return { travel_m: 0, spread_m2: 0, lag_m: 0 };
   const { tables, store } = model;
   const { reference_hot_K: hot, reference_cold_K: cold, bed } = store;
   const gasStep = fluidEnthalpyAt(tables, hot) - fluidEnthalpyAt(tables, cold);
@@ -148,7 +156,7 @@ function expectedMotion(
     tables.heatCapacity[s] as number,
     drive.dt_s,
   );
-  return { travel_m, spread_m2 };
+  return { travel_m, spread_m2, lag_m: Math.sign(flux) * lag };
 }
 
 /** Front views with their disagreement with the nearest front of the same string's tube. */

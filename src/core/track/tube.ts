@@ -42,6 +42,8 @@ export interface TubeState {
   readonly gasLag_m: Float64Array;
   /** Mean temperature of the gas that left in the last step [K], NaN while standing. */
   outlet_K: number;
+  /** Running mean of the innovations' squares over what was expected, per reading; 1 = as expected. */
+  surprise: number;
 }
 
 /** Arrays that the steps of one size share; never part of the state. */
