@@ -98,8 +98,17 @@ describe('rockhour hours of a running daemon', () => {
     expect(code).toBe(4);
   });
 
-  it('finds the port taken when it is started twice, and says so in one message', async () => {
+  it('finds its folder taken when it is started twice, and says so in one message', async () => {
     const { stderr, code } = await rockhour(['run', '--config', config, '--log-level', 'silent']);
+    expect(stderr).toMatch(/^rockhour: .+\n.+ \[STORE_FAILED\]\n$/);
+    expect(code).toBe(4);
+  });
+
+  it('finds its port taken by another daemon, and says so in one message', async () => {
+    const other = join(folder, 'other.yaml');
+    const text = readFileSync(config, 'utf8').replace(join(folder, 'data'), join(folder, 'other'));
+    writeFileSync(other, text);
+    const { stderr, code } = await rockhour(['run', '--config', other, '--log-level', 'silent']);
     expect(stderr).toMatch(/^rockhour: .*EADDRINUSE.*\n.*\[PORT_IN_USE\]\n$/);
     expect(code).toBe(4);
   });
