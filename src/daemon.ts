@@ -14,6 +14,7 @@ import { type Core, realCore } from './daemon/core.js';
 import { Counters } from './daemon/counters.js';
 import { DatabasePart } from './daemon/databasePart.js';
 import { brokerHealth, storeHealth, unitHealth } from './daemon/health.js';
+import { HoursOnChange } from './daemon/hoursOnChange.js';
 import { Housekeeping } from './daemon/housekeeping.js';
 import { MqttPart } from './daemon/mqttPart.js';
 import { Notices } from './daemon/notices.js';
@@ -89,6 +90,7 @@ class RockhourDaemon implements Daemon {
   private readonly mqtt: MqttPart;
   private readonly database: DatabasePart | null;
   private readonly housekeeping: Housekeeping;
+  private readonly hoursOnChange: HoursOnChange;
   /** What has been started, to be ended in reverse order. */
   private readonly ending: (() => void | Promise<void>)[] = [];
   private places: Promise<DaemonPlaces> | null = null;
@@ -132,10 +134,11 @@ class RockhourDaemon implements Daemon {
         this.pipeline.kick();
       },
       count: (name, by) => counters.add(name, by),
+      unwanted: (topic) => this.mqtt.unsubscribe(topic),
       notice: (kind, text) => notices.warn(kind, text),
     });
     this.mqtt = new MqttPart({
-      ...{ config: site.mqtt, site: site.name, version, intake: this.intake, clock, log },
+      ...{ config: site.mqtt, site: site.name, version, intake: this.intake, clock, log, notices },
       connected: () => this.housekeeping.allowClosing(),
     });
     this.database = site.influx
@@ -152,6 +155,13 @@ class RockhourDaemon implements Daemon {
       pipeline: this.pipeline,
       poll_ms,
       forwarded: () => this.database?.cursor ?? Number.POSITIVE_INFINITY,
+    });
+    this.hoursOnChange = new HoursOnChange({
+      ...{ questions: this.questions, history, notices },
+      answered: (runner, dispatch) => {
+        this.mqtt.announcer.dispatch(runner.unit.id, dispatch.time, dispatch.answers);
+        this.service.tell({ kind: 'state', unit: runner.unit.id });
+      },
     });
     this.service = new DaemonService({
       ...{ siteName: site.name, version, runners: this.runners, history, counters, clock },
@@ -280,6 +290,7 @@ class RockhourDaemon implements Daemon {
     const { estimate } = step;
     const { announcer } = this.mqtt;
     announcer.state(estimate);
+    this.hoursOnChange.stepped(runner, estimate, this.pipeline.backlog);
     if (estimate.dispatch) announcer.dispatch(estimate.unit, estimate.time, estimate.dispatch);
     this.service.tell({ kind: 'state', unit: runner.unit.id });
   }
@@ -301,13 +312,13 @@ class RockhourDaemon implements Daemon {
   private health(): HealthPart[] {
     const { mqtt, pipeline, clock } = this;
     const { folder } = this.site.store;
-    const failures = this.counters.get('history_failures');
+    const future = this.counters.get('future');
     return [
       brokerHealth(mqtt.name, mqtt.isConnected, mqtt.refused),
-      storeHealth(folder, this.intake.stuck, pipeline.backlog, failures),
+      storeHealth(folder, this.intake.stuck, pipeline.backlog, pipeline.trouble),
       ...(this.database ? [this.database.health] : []),
       ...[...this.runners.values()].map((runner) =>
-        unitHealth(runner, pipeline.failures.get(runner.unit.id), clock),
+        unitHealth(runner, pipeline.failures.get(runner.unit.id), clock, future),
       ),
     ];
   }

@@ -22,19 +22,16 @@ export function storeHealth(
   folder: string,
   isStuck: boolean,
   backlog: number,
-  failures: number,
+  trouble: string | null,
 ): HealthPart {
   if (isStuck) {
     const detail = `the journal in ${folder} cannot be written; messages wait at the broker`;
     return { name: 'store', ok: false, detail };
   }
   const detail = `${backlog} readings to work off in ${folder}`;
-  if (failures === 0) return { name: 'store', ok: true, detail };
-  return {
-    name: 'store',
-    ok: false,
-    detail: `${detail}; ${failures} writes to the history failed`,
-  };
+  return trouble === null
+    ? { name: 'store', ok: true, detail }
+    : { name: 'store', ok: false, detail: `${detail}; ${trouble}` };
 }
 
 export function databaseHealth(forwarder: InfluxForwarder, outbox: Outbox): HealthPart {
@@ -52,11 +49,14 @@ export function unitHealth(
   runner: UnitRunner,
   failure: string | undefined,
   clock: DaemonClock,
+  future: number,
 ): HealthPart {
   const name = `unit ${runner.unit.id}`;
   if (failure !== undefined) return { name, ok: false, detail: `the last scan failed: ${failure}` };
-  if (runner.newest_ms === null) return { name, ok: false, detail: 'no reading yet' };
+  const ahead =
+    future === 0 ? '' : `; ${future} readings stamped ahead of this machine's clock were not used`;
+  if (runner.newest_ms === null) return { name, ok: false, detail: `no reading yet${ahead}` };
   const age_s = Math.max(0, (clock.now() - runner.newest_ms) / 1000);
   const ok = age_s <= runner.unit.watch.data_age_s.limit;
-  return { name, ok, detail: `newest reading ${Math.round(age_s)} s old` };
+  return { name, ok, detail: `newest reading ${Math.round(age_s)} s old${ahead}` };
 }

@@ -6,6 +6,7 @@ import type { MqttConfig } from '../config/site.js';
 import { withoutCredentials } from '../errors.js';
 import type { Log } from '../log.js';
 import type { DaemonClock } from './clock.js';
+import type { Notices } from './notices.js';
 
 export interface MqttPartOptions {
   readonly config: MqttConfig;
@@ -14,6 +15,7 @@ export interface MqttPartOptions {
   readonly intake: Intake;
   readonly clock: DaemonClock;
   readonly log: Log;
+  readonly notices: Notices;
   /** The broker can be reached, at the start and after each outage. */
   connected(): void;
 }
@@ -43,7 +45,9 @@ export class MqttPart {
       receive: (delivery) => intake.receive(delivery),
       up: () => this.up(),
       down: (reason) =>
-        options.log.warn(
+        // By kind and minute: two clients with one client id would push each other out for ever.
+        options.notices.warn(
+          'mqtt_down',
           `no connection to the MQTT broker ${this.name}: ${reason}; rockhour keeps trying`,
         ),
       refused: (reason) => {
@@ -78,6 +82,10 @@ export class MqttPart {
     await this.broker?.start();
   }
 
+  unsubscribe(topic: string): void {
+    this.link.unsubscribe(topic);
+  }
+
   async stopBroker(): Promise<void> {
     await this.broker?.stop();
   }
@@ -101,7 +109,7 @@ export class MqttPart {
 
   private up(): void {
     this.refusal = null;
-    this.options.log.info(`connected to the MQTT broker ${this.name}`);
+    this.options.notices.info('mqtt_up', `connected to the MQTT broker ${this.name}`);
     this.announcer.connected();
     this.options.connected();
   }

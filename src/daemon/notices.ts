@@ -15,6 +15,14 @@ export class Notices {
   constructor(private readonly log: Log) {}
 
   warn(kind: string, text: string): void {
+    this.say('warn', kind, text);
+  }
+
+  info(kind: string, text: string): void {
+    this.say('info', kind, text);
+  }
+
+  private say(level: 'warn' | 'info', kind: string, text: string): void {
     const now = performance.now();
     const known = this.kinds.get(kind);
     if (known && now - known.since < WINDOW_MS) {
@@ -24,6 +32,6 @@ export class Notices {
     const unsaid = known?.unsaid ?? 0;
     this.kinds.set(kind, { since: now, unsaid: 0 });
     // Texts carry what came over the network.
-    this.log.warn({ kind, ...(unsaid > 0 ? { unsaid } : {}) }, withoutControls(text));
+    this.log[level]({ kind, ...(unsaid > 0 ? { unsaid } : {}) }, withoutControls(text));
   }
 }

@@ -49,6 +49,7 @@ export class Pipeline {
   private idle: (() => void)[] = [];
   private readonly nextCheckpoint = new Map<string, number>();
   private readonly failing = new Map<string, string>();
+  private storeTrouble: string | null = null;
 
   constructor(private readonly options: PipelineOptions) {}
 
@@ -60,6 +61,8 @@ export class Pipeline {
     this.liveFrom = journal.lastSeq + 1;
     for (const runner of runners) restoreRunner(runner, this.options);
     this.seq = Math.min(journal.lastSeq, ...runners.map((runner) => runner.seq));
+    this.page = [];
+    this.onPage = 0;
     // A stop may have come amid the scans of a long gap.
     this.busy = [...runners];
     this.kick();
@@ -94,8 +97,7 @@ export class Pipeline {
       try {
         journal.appendClose(runner.unit.id, index, Math.floor(clock.now()));
       } catch (thrown) {
-        this.options.counters.add('journal_failures');
-        this.options.notices.warn('journal_failures', reasonOf(thrown));
+        this.storeFailed('journal_failures', thrown);
         return;
       }
     }
@@ -110,6 +112,11 @@ export class Pipeline {
   /** Why a unit's last scan could not be taken in, by unit. */
   get failures(): ReadonlyMap<string, string> {
     return this.failing;
+  }
+
+  /** Why the journal or the history could not be read or written the last time, null if they could. */
+  get trouble(): string | null {
+    return this.storeTrouble;
   }
 
   /** Resolves when everything in the journal is in the estimates. */
@@ -169,8 +176,7 @@ export class Pipeline {
     try {
       return this.options.journal.read(this.seq, PAGE);
     } catch (thrown) {
-      this.options.counters.add('journal_failures');
-      this.options.notices.warn('journal_failures', reasonOf(thrown));
+      this.storeFailed('journal_failures', thrown);
       return [];
     }
   }
@@ -198,7 +204,7 @@ export class Pipeline {
   }
 
   private enter(runner: UnitRunner, step: RunnerStep): void {
-    const { history, counters, notices, stepped, event } = this.options;
+    const { history, stepped, event } = this.options;
     const { estimate, profile, events } = step.step;
     try {
       const news = history.write(() => {
@@ -206,11 +212,12 @@ export class Pipeline {
         if (profile) history.estimates.addProfile(profile);
         return { isNew, events: events.filter((one) => history.events.add(one)) };
       });
+      this.storeTrouble = null;
       if (news.isNew) stepped(runner, step);
       for (const one of news.events) event(one);
     } catch (thrown) {
-      counters.add('history_failures');
-      notices.warn('history_failures', reasonOf(thrown));
+      // What cannot be stored is said all the same.
+      this.storeFailed('history_failures', thrown);
       stepped(runner, step);
       for (const one of events) event(one);
     }
@@ -226,7 +233,7 @@ export class Pipeline {
   }
 
   private save(runner: UnitRunner): void {
-    const { history, counters, notices } = this.options;
+    const { history } = this.options;
     const checkpoint = runner.checkpoint();
     if (!checkpoint) return;
     try {
@@ -235,9 +242,14 @@ export class Pipeline {
         if (runner.view.profile) history.estimates.addProfile(runner.view.profile, true);
       });
     } catch (thrown) {
-      counters.add('history_failures');
-      notices.warn('history_failures', reasonOf(thrown));
+      this.storeFailed('history_failures', thrown);
     }
+  }
+
+  private storeFailed(kind: 'journal_failures' | 'history_failures', thrown: unknown): void {
+    this.storeTrouble = reasonOf(thrown);
+    this.options.counters.add(kind);
+    this.options.notices.warn(kind, this.storeTrouble);
   }
 
   private failed(runner: UnitRunner, thrown: unknown): void {

@@ -2,7 +2,7 @@ import type { History } from '../adapters/history/history.js';
 import type { Journal } from '../adapters/history/journal.js';
 import { reasonOf } from '../errors.js';
 import type { Log } from '../log.js';
-import type { DaemonClock } from './clock.js';
+import type { DaemonClock, SteadyClock } from './clock.js';
 import type { UnitRunner } from './unitRunner.js';
 
 /** Of a unit without a usable checkpoint, this much of the journal is run again [ms of arrival]. */
@@ -12,6 +12,7 @@ interface RestoreParts {
   readonly journal: Journal;
   readonly history: History;
   readonly clock: DaemonClock;
+  readonly steady: SteadyClock;
   readonly log: Log;
 }
 
@@ -20,12 +21,12 @@ interface RestoreParts {
  * unit without one starts afresh, from the last day of the journal.
  */
 export function restoreRunner(runner: UnitRunner, parts: RestoreParts): void {
-  const { history, log, journal, clock } = parts;
+  const { history, log, journal, clock, steady } = parts;
   const { id } = runner.unit;
   for (const checkpoint of history.checkpoints.list(runner.unit)) {
     if (checkpoint.journal_seq > journal.lastSeq) continue;
     try {
-      runner.restore(checkpoint);
+      runner.restore(checkpoint, steady.now());
     } catch (thrown) {
       log.warn({ unit: id }, `a checkpoint cannot be used: ${reasonOf(thrown)}`);
       continue;

@@ -87,13 +87,15 @@ export class UnitRunner {
   }
 
   /** Throws where the checkpoint is damaged or does not fit this unit or this build. */
-  restore(checkpoint: StoredCheckpoint): void {
+  restore(checkpoint: StoredCheckpoint, steady_ms: number): void {
     const image = checkpoint.load() as RunnerImage;
     const assembler = new Assembler(this.unit, this.options, this.finish);
     assembler.restore(image.assembler);
     this.state = this.core.restoreUnit(this.unit, image.unit);
     this.assembler = assembler;
     this.taken_seq = checkpoint.journal_seq;
+    // A plant that stays silent from here on still sees its scans close.
+    if (assembler.newest !== null) this.plantClock.observe(assembler.newest, steady_ms);
   }
 
   /** The whole state; null before the first scan. */

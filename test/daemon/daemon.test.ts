@@ -204,6 +204,28 @@ describe.skipIf(!mosquitto)('a daemon at a real broker', () => {
     expect(storedEstimates(site).map((one) => one.state_of_charge)).toEqual(byReplay(100));
   });
 
+  it('ends a subscription that the broker remembers from another configuration', async () => {
+    const { url } = await broker();
+    const before = smallSite(url);
+    const old = { unit: 'u', topic: 'in/old', payload: 'value' as const, channels: ['a'] };
+    const first = makeDaemon({ ...before, sources: [...before.sources, old] });
+    await first.start();
+    await waitFor('the broker', () => first.service.health()[0]!.ok);
+    await first.stop();
+    const second = makeDaemon(before);
+    await second.start();
+    await waitFor('the broker', () => second.service.health()[0]!.ok);
+    const client = await publisher(url);
+    await publish(client, 'in/old', { time: START, value: 1 });
+    await counted(second, 'unknown_topic', 1);
+    // Sent after the UNSUBSCRIBE, which the broker takes in before it.
+    await new Promise((resolve) => setTimeout(resolve, 200));
+    await publish(client, 'in/old', { time: START, value: 2 });
+    await publishScan(client, START, values(0));
+    await counted(second, 'scans', 1);
+    expect(count(second, 'unknown_topic')).toBe(1);
+  });
+
   it('loses nothing over a restart of the broker', async () => {
     const service = await broker();
     const site = smallSite(service.url);

@@ -3,6 +3,8 @@ import SQLite from 'better-sqlite3';
 import { describe, expect, it } from 'vitest';
 import type { SiteConfig } from '../../src/config/site.js';
 import type { UnitDefinition } from '../../src/core/definitions.js';
+import { fastClock } from '../../src/daemon.js';
+import { waitFor } from '../support/wait.js';
 import { fakeCore } from './fakeCore.js';
 import {
   count,
@@ -108,6 +110,46 @@ describe('a daemon that was killed', () => {
     ]);
     expect(count(daemon, 'scans')).toBe(80);
     await daemon.stop();
+  });
+});
+
+describe('a daemon at a plant that is silent since before its start', () => {
+  it('closes empty scans all the same, so that the age of the data is seen', async () => {
+    const site = await worked();
+    const daemon = makeDaemon(site, { clock: fastClock(Date.now(), 600) });
+    await daemon.start();
+    await counted(daemon, 'scans_empty', 3);
+    expect(daemon.service.standing()).toMatchObject([{ kind: 'data_stale' }]);
+    await daemon.stop();
+  });
+});
+
+describe('hours', () => {
+  it('are there after a change of mode, without waiting for the next stroke of the clock', async () => {
+    const site = smallSite(null);
+    let mode: 'stand' | 'charge' = 'stand';
+    const daemon = makeDaemon(site, {
+      core: {
+        ...fakeCore,
+        advance(...args) {
+          const step = fakeCore.advance(...args);
+          return { ...step, estimate: { ...step.estimate, mode } };
+        },
+      },
+    });
+    const { broker } = await daemon.start();
+    const client = await publisher(broker);
+    await waitFor('the link', () => daemon.service.health()[0]!.ok);
+    const stroke = Math.ceil(START / 600_000) * 600_000;
+    await publishScan(client, stroke, [1, 2, 3]);
+    await counted(daemon, 'scans', 1);
+    expect(daemon.service.now('u')!.dispatch!.time).toBe(new Date(stroke).toISOString());
+    mode = 'charge';
+    await publishScan(client, stroke + PERIOD_MS, [1, 2, 3]);
+    const changed = new Date(stroke + PERIOD_MS).toISOString();
+    await waitFor('new hours', () => daemon.service.now('u')!.dispatch!.time === changed);
+    await daemon.stop();
+    expect(storedEstimates(site).filter((one) => one.dispatch)).toHaveLength(1);
   });
 });
 

@@ -43,8 +43,9 @@ export class Estimates {
     return isNew;
   }
 
-  private addDispatch(unit: string, time_ms: number, answers: readonly DispatchAnswer[]): void {
-    this.insert(
+  /** @returns false where the unit already has answers of this time */
+  addDispatch(unit: string, time_ms: number, answers: readonly DispatchAnswer[]): boolean {
+    return this.insert(
       'INSERT OR IGNORE INTO dispatch (seq, unit, time, json) VALUES (?, ?, ?, ?)',
       ...[unit, time_ms, JSON.stringify(answers)],
     );

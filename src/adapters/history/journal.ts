@@ -141,10 +141,14 @@ export class Journal {
     return low;
   }
 
-  /** Deletes entries up to `seq`, but never the newest, whose number is the memory of all before. */
-  forget(seq: number): number {
+  /**
+   * Deletes entries up to `seq`, so many at most, and never the newest, whose number is the memory
+   * of all before.
+   */
+  forget(seq: number, most = 100_000): number {
     try {
-      const end = Math.min(seq, this.last - 1);
+      const oldest = this.first('SELECT min(seq) AS n FROM entries') ?? 0;
+      const end = Math.min(seq, this.last - 1, oldest + most - 1);
       return this.open().prepare('DELETE FROM entries WHERE seq <= ?').run(end).changes;
     } catch (thrown) {
       throw storeFailure(`thinning the journal ${this.file}`, thrown);

@@ -41,6 +41,8 @@ export interface IntakeOptions {
   /** Writes readings to the disk; they are safe when it returns. May throw. */
   commit(readings: readonly IntakeReading[]): void;
   count(name: IntakeCount, by: number): void;
+  /** A topic that nothing is configured for: a subscription left from another configuration. */
+  unwanted(topic: string): void;
   /** Something that a person may want to read, by kind. */
   notice(kind: IntakeCount, text: string): void;
 }
@@ -122,6 +124,7 @@ export class Intake {
     else {
       count('unknown_topic', 1);
       notice('unknown_topic', `nothing is configured for topic ${delivery.topic}`);
+      this.options.unwanted(delivery.topic);
     }
     if (this.failing) return;
     if (this.unflushed >= GROUP_MESSAGES) this.flush();

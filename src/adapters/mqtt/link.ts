@@ -116,6 +116,12 @@ export class MqttLink {
     return true;
   }
 
+  /** Ends a subscription that the broker remembers from before. */
+  unsubscribe(topic: string): void {
+    // Said again with the next message should it fail.
+    if (this.isUp) this.client?.unsubscribe(topic, () => undefined);
+  }
+
   private send(client: MqttClient, topic: string, payload: string): void {
     this.waiting.set(topic, null);
     client.publish(topic, payload, { qos: 1, retain: true }, () => {

@@ -35,6 +35,7 @@ function harness() {
     count: (name, by) => {
       counts[name] = (counts[name] ?? 0) + by;
     },
+    unwanted: (topic) => done.push(`unwanted ${topic}`),
     notice: (kind, text) => notices.push(`${kind}: ${text}`),
   });
   const send = (topic: string, content: unknown, name = topic): Delivery => {
@@ -56,9 +57,9 @@ describe('the intake', () => {
     send('one/a', { time: 1, value: 1 });
     send('one/bc', { time: 1, values: [2, 3] });
     send('nowhere', { time: 1, value: 1 });
-    expect(done).toEqual([]);
+    expect(done).toEqual(['unwanted nowhere']);
     vi.advanceTimersByTime(50);
-    expect(done).toEqual(['commit 3', 'ack one/a', 'ack one/bc', 'ack nowhere']);
+    expect(done.slice(1)).toEqual(['commit 3', 'ack one/a', 'ack one/bc', 'ack nowhere']);
   });
 
   it('does not wait for the clock once a group is full', () => {
@@ -146,7 +147,7 @@ describe('the intake', () => {
   });
 
   it('is refused where a source names a channel that the unit does not have', () => {
-    const options = { now: () => 0, commit() {}, count() {}, notice() {} };
+    const options = { now: () => 0, commit() {}, count() {}, unwanted() {}, notice() {} };
     const make = () =>
       new Intake({ ...options, units: [unit('u1')], sources: [source('u1', 't', 'zz')] });
     expect(make).toThrow(/topic t must name channels of unit u1, got zz/);
