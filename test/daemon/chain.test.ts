@@ -10,12 +10,13 @@ import { createDemoPlant, type DemoStep } from '../../src/plant/demoPlant.js';
 import { rockhour } from '../support/cli.js';
 import { temporaryFolder } from '../support/folders.js';
 import { requireProgram } from '../support/requirements.js';
-import { startMosquitto } from '../support/services.js';
+import { startInflux, startMosquitto } from '../support/services.js';
 import { waitFor } from '../support/wait.js';
 import { counted, later, makeDaemon, storedEstimates } from './harness.js';
 import { siteFile } from './siteFile.js';
 
 const mosquitto = requireProgram('mosquitto');
+const influxd = requireProgram('influxd');
 const SCANS = 90;
 
 function recorded(site: SiteConfig): DemoStep[] {
@@ -82,3 +83,53 @@ describe.skipIf(!mosquitto)('a recording of the demonstration plant', () => {
     expect(live.filter((one) => one.dispatch).length).toBeGreaterThan(3);
   }, 120_000);
 });
+
+async function select(url: string, query: string): Promise<unknown[][]> {
+  const answer = await fetch(`${url}/query?db=rockhour&epoch=ms&q=${encodeURIComponent(query)}`);
+  const body = (await answer.json()) as { results: { series?: { values: unknown[][] }[] }[] };
+  return body.results[0]?.series?.[0]?.values ?? [];
+}
+
+describe.skipIf(!mosquitto || !influxd)(
+  'the demonstration plant, from mosquitto to InfluxDB',
+  () => {
+    it('stands in the database as in the local store, to the last bit', async () => {
+      const service = await startMosquitto(mosquitto!);
+      later(() => service.stop());
+      const influx = await startInflux(influxd!);
+      later(() => influx.stop());
+      const { path } = siteFile({
+        mqtt: { url: service.url, client_id: 'influx-test', protocol: 5 },
+        influx: { url: influx.url },
+      });
+      const site = loadSite(path);
+      const unit = site.units[0]!;
+      const daemon = await started(site);
+      const gateway = new ReadingPublisher(service.url, site.sources);
+      await gateway.start();
+      later(() => gateway.stop());
+      const steps = recorded(site).slice(0, 30);
+      await Promise.all(steps.map((one) => gateway.readings(unit.id, one.time_ms, one.values)));
+      await counted(daemon, 'scans_complete', steps.length, 30_000);
+      const part = () => daemon.service.health().find(({ name }) => name === 'influxdb')!;
+      await waitFor('an empty outbox', () => part().detail === '0 entries to forward');
+      await daemon.stop();
+      const stored = storedEstimates(site, unit.id);
+      const of = (pick: (one: Estimate) => unknown) =>
+        stored.map((one) => [Date.parse(one.time), pick(one)]);
+      const charge = 'SELECT state_of_charge FROM rockhour_unit';
+      expect(await select(influx.url, charge)).toEqual(of((one) => one.state_of_charge));
+      const heat = "SELECT stored_MWh_th FROM rockhour_store WHERE store = 'hot'";
+      expect(await select(influx.url, heat)).toEqual(of((one) => one.stores.hot!.stored_MWh_th));
+      const flow =
+        "SELECT flow_factor FROM rockhour_string WHERE store = 'cold' AND string = 'axis'";
+      const factor = (one: Estimate) =>
+        one.stores.cold!.strings.find(({ id }) => id === 'axis')!.flow_factor;
+      expect(await select(influx.url, flow)).toEqual(of(factor));
+      const hours = 'SELECT hours_p90 FROM rockhour_dispatch';
+      const asked = stored.filter((one) => one.dispatch);
+      const answers = (await select(influx.url, hours)).length;
+      expect(answers).toBe(asked.length * unit.hours_at_W.length);
+    }, 120_000);
+  },
+);
