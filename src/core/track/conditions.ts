@@ -76,7 +76,7 @@ export interface Conditions {
   /** Signed metered flow used for this scan, + = charge [kg/s]. */
   readonly flow_kg_s: number;
   readonly flowKnown: boolean;
-  /** Net power, + = delivered to the grid [W]; NaN unknown. */
+  /** Net power, + = drawn to charge, as the configuration counts it [W]; NaN unknown. */
   readonly power_W: number;
   readonly ambient_K: number;
 }
@@ -173,7 +173,7 @@ function measuredFlow(
     if (!Number.isFinite(charge) && !Number.isFinite(discharge)) return Number.NaN;
     return (Number.isFinite(charge) ? charge : 0) - (Number.isFinite(discharge) ? discharge : 0);
   }
-  const byPower = Number.isFinite(power_W) ? -Math.sign(power_W) : null;
+  const byPower = Number.isFinite(power_W) ? Math.sign(power_W) : null;
   const direction = told ?? byPower;
   if (map.flowUnsigned >= 0) {
     const flow = at(map.flowUnsigned);
