@@ -22,7 +22,7 @@ describe('a sound site', () => {
   });
 
   it('takes what is not given from the defaults that the reference tells', () => {
-    const { units, mqtt, influx, http, store } = siteOf('demo', (d) => {
+    const { units, mqtt, influx, http, store, clock_tolerance_s } = siteOf('demo', (d) => {
       for (const key of ['mqtt', 'store']) delete d[key];
       delete d.units[0].hours_at_MW_el;
     });
@@ -38,6 +38,7 @@ describe('a sound site', () => {
       protocol: 4,
       qos: 1,
     });
+    expect(clock_tolerance_s).toBe(300);
     expect(influx).toBeNull();
     expect(http).toEqual({ host: '127.0.0.1', port: 8080, path_prefix: '' });
     expect(store.folder).toMatch(/\/config\/data$/);

@@ -66,6 +66,12 @@ export const siteSchema = z.strictObject({
     'How long after its nominal end a scan waits for missing readings.',
     10,
   ).default(10),
+  clock_tolerance_s: key(
+    z.number().min(1).max(86400),
+    's',
+    "A reading stamped further ahead of this machine's clock than this is counted and not used.",
+    300,
+  ).default(300),
   mqtt: section(mqttSchema.prefault({}), 'Where the readings come from and the answers go.'),
   influx: section(
     influxSchema.optional(),
