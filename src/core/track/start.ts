@@ -45,8 +45,8 @@ export function blankTube(model: TubeModel): TubeState {
  *
  *   P = W R W' + A_i A_j exp(-|x_i - x_j|/l),   W the interpolation weights,
  *
- * R the readings' noise and offsets, A the room that the profile has between and beyond the
- * thermocouples. The readings' offsets are correlated with the profile that was drawn through
+ * R the readings' noise and offsets (a group's common to its own readings alone), A the room that the
+ * profile has between and beyond the thermocouples. The readings' offsets are correlated with the profile that was drawn through
  * them: cov(T, o_s) = -W_s sigma_o^2. Factors keep what is known of them; their correlation with
  * the old profile is dropped.
  *
@@ -108,7 +108,7 @@ export function startTube(
       const correlation = Math.exp(-(Math.abs(i - j) * dx) / length);
       const value =
         scale * (room[i] as number) * (room[j] as number) * correlation +
-        scale * (shared(i, j) * (noise + offsetVariance) + group);
+        scale * (shared(i, j) * (noise + offsetVariance) + sharedGroups(i, j) * group);
       p[i * size + j] = value;
       p[j * size + i] = value;
     }
@@ -130,6 +130,20 @@ export function startTube(
     if (right[i] !== left[i]) {
       sum += weightOf(i, right[i] as number) * weightOf(j, right[i] as number);
     }
+    return sum;
+  }
+  /** Weight of cell i's interpolation on readings of group g; readings of another string count as one group. */
+  function groupWeight(i: number, g: number): number {
+    const of = (reading: number): number => {
+      const { sensor } = sorted[reading] as StartReading;
+      return sensor < 0 ? layout.groups.length : (layout.groupOf[sensor] as number);
+    };
+    const u = weight[i] as number;
+    return (of(left[i] as number) === g ? 1 - u : 0) + (of(right[i] as number) === g ? u : 0);
+  }
+  function sharedGroups(i: number, j: number): number {
+    let sum = 0;
+    for (let g = 0; g <= layout.groups.length; g++) sum += groupWeight(i, g) * groupWeight(j, g);
     return sum;
   }
   function freshOffset(s: number): void {
