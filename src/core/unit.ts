@@ -82,9 +82,9 @@ export function advance(
   for (const time_ms of missingTicks(unit, state.time_ms, scan.time_ms)) {
     const values = new Float64Array(unit.channels.length).fill(Number.NaN);
     const empty = { time_ms, values, held: new Uint8Array(values.length) };
-    events.push(...describe(model, state, empty, takeIn(model, state, empty), NOTHING).events);
+    events.push(...describe(model, state, takeIn(model, state, empty), NOTHING).events);
   }
-  const step = describe(model, state, scan, takeIn(model, state, scan), ask);
+  const step = describe(model, state, takeIn(model, state, scan), ask);
   return { ...step, events: [...events, ...step.events] };
 }
 

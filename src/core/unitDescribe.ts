@@ -1,7 +1,6 @@
 import { computeHours } from './dispatch/hours.js';
 import { hoursInput, stateOfCharge } from './dispatch/unitHours.js';
 import type { Estimate, ProfileView, Quality, StoreEstimate } from './estimate.js';
-import type { Scan } from './scan/scan.js';
 import { estimateStore, profileOf } from './track/storeEstimate.js';
 import type { StoreState } from './track/storeTracker.js';
 import { describeViews, type StoreViews, storeSpread } from './track/storeViews.js';
@@ -12,14 +11,9 @@ import type { Taken, TakenStore } from './unitTakeIn.js';
 import { type Spread, stepWatch } from './watch/watch.js';
 
 /** The estimate of a scan just taken in, the hours asked for, and what the watch raises. */
-export function describe(
-  model: UnitModel,
-  state: UnitState,
-  scan: Scan,
-  taken: Taken,
-  ask: UnitAsk,
-): UnitStep {
+export function describe(model: UnitModel, state: UnitState, taken: Taken, ask: UnitAsk): UnitStep {
   const { unit } = model;
+  const { scan } = taken;
   const flowing = taken.conditions.flow_kg_s !== 0;
   const stores: Record<string, StoreEstimate> = {};
   const spread: Record<string, Spread> = {};
@@ -43,7 +37,7 @@ export function describe(
     unit: unit.id,
     revision: 0,
     mode: taken.conditions.mode,
-    quality: qualityOf(model, state, scan, taken),
+    quality: qualityOf(model, state, taken),
     state_of_charge: stateOfCharge(
       model,
       state,
@@ -79,13 +73,14 @@ export function describe(
   return { estimate, profile, events };
 }
 
-function qualityOf(model: UnitModel, state: UnitState, scan: Scan, taken: Taken): Quality {
-  const age_s = state.seen_ms === null ? Infinity : (scan.time_ms - state.seen_ms) / 1000;
+function qualityOf(model: UnitModel, state: UnitState, taken: Taken): Quality {
+  const age_s = state.seen_ms === null ? Infinity : (taken.scan.time_ms - state.seen_ms) / 1000;
   if (age_s > model.unit.watch.data_age_s.limit) return 'stale';
   if (taken.stores.some(({ step }) => step === 'missed' || step === 'not_started')) return 'blind';
   const used = state.stores.reduce((sum, store) => sum + store.used, 0);
   if (used === 0 && !taken.conditions.flowKnown) return 'blind';
   const settled = state.stores.every((store) => store.settled >= 10);
+  if (taken.implausible > 0) return 'degraded';
   if (!taken.conditions.flowKnown || used < 0.6 * model.thermocouples.length || !settled) {
     return 'degraded';
   }

@@ -2,6 +2,7 @@ import type { UnitDefinition } from './definitions.js';
 import { centralHours } from './dispatch/hours.js';
 import { createMachine, type Machine } from './machine/machine.js';
 import { type ChannelMap, mapChannels } from './track/conditions.js';
+import { plausibleRanges } from './track/plausible.js';
 import { type StoreModel, startStore, storeModel } from './track/storeTracker.js';
 import { setTubeTemperatures, type TubeState } from './track/tube.js';
 
@@ -10,6 +11,8 @@ export interface UnitModel {
   readonly unit: UnitDefinition;
   readonly machine: Machine;
   readonly map: ChannelMap;
+  /** What each channel may read; see plausible. */
+  readonly ranges: ReturnType<typeof plausibleRanges>;
   readonly stores: readonly StoreModel[];
   /** Channel indices of all thermocouples. */
   readonly thermocouples: readonly number[];
@@ -51,6 +54,7 @@ export function unitModel(unit: UnitDefinition): UnitModel {
     unit,
     machine,
     map: mapChannels(unit),
+    ranges: plausibleRanges(unit),
     stores,
     thermocouples: stores.flatMap((store) => store.channels.flat()),
     fullHours: hoursWhenFull(unit, machine, stores),

@@ -4,6 +4,7 @@ import type { Scan } from './scan/scan.js';
 import { type Conditions, readConditions } from './track/conditions.js';
 import { driveOf, storeOutlets, unknownTravel } from './track/drive.js';
 import type { FrontViewStep } from './track/frontView.js';
+import { withoutImplausible } from './track/plausible.js';
 import { type StoreEnergy, storeEnergy } from './track/storeEnergy.js';
 import { storeFronts } from './track/storeEstimate.js';
 import { type StoreState, type StoreStep, stepStore } from './track/storeTracker.js';
@@ -13,6 +14,9 @@ import type { UnitState } from './unitState.js';
 
 /** What taking a scan in has shown, for the estimate that describes it. */
 export interface Taken {
+  /** The scan as it was used: readings that no plant produces are missing ones; how many those were. */
+  readonly scan: Scan;
+  readonly implausible: number;
   readonly conditions: Conditions;
   readonly stores: readonly TakenStore[];
   /** Thermocouple readings, and readings of any channel, in this scan. */
@@ -29,8 +33,9 @@ export interface TakenStore {
 }
 
 /** Takes one scan into a unit's state: conditions, tubes, front views, twin, machine factor. */
-export function takeIn(model: UnitModel, state: UnitState, scan: Scan): Taken {
+export function takeIn(model: UnitModel, state: UnitState, raw: Scan): Taken {
   const { unit } = model;
+  const { scan, dropped: implausible } = withoutImplausible(model.ranges, raw);
   const dt_s = state.time_ms === null ? 0 : (scan.time_ms - state.time_ms) / 1000;
   const outlets = storeOutlets(model, state, scan);
   const conditions = readConditions(
@@ -77,5 +82,5 @@ export function takeIn(model: UnitModel, state: UnitState, scan: Scan): Taken {
   state.mode = conditions.mode;
   state.time_ms = scan.time_ms;
   const readings = scan.values.reduce((n, v) => n + (Number.isFinite(v) ? 1 : 0), 0);
-  return { conditions, stores, thermocouples, readings, modeChanged };
+  return { scan, implausible, conditions, stores, thermocouples, readings, modeChanged };
 }
