@@ -45,10 +45,10 @@ export function blankTube(model: TubeModel): TubeState {
  *
  *   P = W R W' + A_i A_j exp(-|x_i - x_j|/l),   W the interpolation weights,
  *
- * R the readings' noise and offsets (a group's common to its own readings alone), A the room that the
- * profile has between and beyond the thermocouples. The readings' offsets are correlated with the profile that was drawn through
- * them: cov(T, o_s) = -W_s sigma_o^2. Factors keep what is known of them; their correlation with
- * the old profile is dropped.
+ * R the readings' noise and offsets (a group's common to its own readings alone), A the room that
+ * the profile has between and beyond the thermocouples. The readings' offsets are correlated with
+ * the profile that was drawn through them: cov(T, o_s) = -W_s sigma_o^2. Factors keep what is known
+ * of them; their correlation with the old profile is dropped.
  *
  * @param inflate factor on sigma, > 1 when re-acquiring
  * @throws RangeError for fewer than two readings
