@@ -69,6 +69,7 @@ export function resolveStore(store: StoreBlock): StoreDefinition {
       heat_capacity_factor: factors.heat_capacity,
       loss_factor: factors.loss,
       wall_loss_W_m2K: losses.wall_W_m2K,
+      wall_capacity_J_m2K: losses.wall_steel_kJ_m2K * 1e3,
       end_loss_W_m2K: {
         charge_inlet: losses.charge_inlet_end_W_m2K,
         discharge_inlet: losses.discharge_inlet_end_W_m2K,

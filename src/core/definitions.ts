@@ -81,6 +81,8 @@ export interface BedDefinition {
   readonly loss_factor: number;
   /** Heat loss coefficients [W/m2K]: mantle (referred to the bed's surface), and the two ends. */
   readonly wall_loss_W_m2K: number;
+  /** Heat capacity of the vessel's wall inside its insulation [J/m2K], 0 or absent = none. */
+  readonly wall_capacity_J_m2K?: number;
   readonly end_loss_W_m2K: Readonly<Record<StoreEnd, number>>;
   /** Heat capacity of plenum and lid steel at each end [J/K], 0 = none. */
   readonly end_capacity_J_K: Readonly<Record<StoreEnd, number>>;

@@ -52,6 +52,12 @@ const coefficient = (where: string) =>
   ).default(0.3);
 const losses = z.strictObject({
   wall_W_m2K: coefficient('the mantle'),
+  wall_steel_kJ_m2K: key(
+    z.number().min(0).max(2000),
+    'kJ/m2K',
+    'Heat capacity of the vessel wall inside its insulation, per area; 15 mm of steel have 59. 0: not counted.',
+    59,
+  ).default(0),
   charge_inlet_end_W_m2K: coefficient('the end at the charge inlet'),
   discharge_inlet_end_W_m2K: coefficient('the end at the discharge inlet'),
 });

@@ -6,6 +6,7 @@ import type { Machine } from '../machine/machine.js';
 import { storeEnergy } from '../track/storeEnergy.js';
 import { cellCentres } from '../track/storeEstimate.js';
 import type { StoreModel, StoreState } from '../track/storeTracker.js';
+import { streamsOf } from '../track/streams.js';
 import type { TubeModel, TubeState } from '../track/tube.js';
 import { normalPoints } from './normalPoints.js';
 import { type RolloutInput, type RolloutStore, RULES, rollOut } from './rollout.js';
@@ -116,7 +117,8 @@ function createRoller(
   power_W: number,
 ): { roll(change?: Perturbation): ReturnType<typeof rollOut>; most_s: number } {
   const works: BedWork[][] = input.models.map((model) =>
-    model.tubes.map((tube) => createBedWork(tube.layout.cells)),
+    // One more for the zone at the wall.
+    [...model.tubes, ...model.tubes.slice(0, 1)].map((tube) => createBedWork(tube.layout.cells)),
   );
   const most_s =
     MOST_RATED * input.unit.rated_hours * 3600 * Math.max(1, input.unit.rated_power_W / power_W);
@@ -148,17 +150,10 @@ function rolloutStore(model: StoreModel, state: StoreState, plenum_K: number): R
     store: model.store,
     tables: model.tables,
     plenum_K,
-    tubes: model.tubes.map((tube, k) => {
-      const tubeState = state.tubes[k] as TubeState;
-      const at = (index: number): number => tubeState.further[index - tube.layout.cells] as number;
-      return {
-        area_share: tube.string.area_share,
-        enthalpy: tubeState.enthalpy,
-        flowFactor: Math.exp(at(tube.layout.flow)),
-        heatTransferFactor: Math.exp(at(tube.layout.transfer)),
-        wallLoss_W_m3K: tube.wallLoss_W_m3K,
-      };
-    }),
+    tubes: streamsOf(model, state).map(({ share, ...stream }) => ({
+      ...stream,
+      area_share: share,
+    })),
   };
 }
 

@@ -1,5 +1,6 @@
 import { enthalpyAt } from '../bed/tables.js';
 import type { StoreModel, StoreState } from './storeTracker.js';
+import { streamsOf } from './streams.js';
 import type { TubeModel, TubeState } from './tube.js';
 
 const J_PER_MWH = 3.6e9;
@@ -51,14 +52,14 @@ export function storeEnergy(model: StoreModel, state: StoreState): StoreEnergy {
   let common = 0;
   let aligned = 0;
   let squares = 0;
+  for (const { share, enthalpy } of streamsOf(model, state)) {
+    let sum = 0;
+    for (const h of enthalpy) sum += h - discharged;
+    soc += (share * sum) / (enthalpy.length * span);
+  }
   model.tubes.forEach((tube, k) => {
     const tubeState = state.tubes[k] as TubeState;
     const w = tube.string.area_share;
-    let sum = 0;
-    for (let i = 0; i < tube.layout.cells; i++) {
-      sum += (tubeState.enthalpy[i] as number) - discharged;
-    }
-    soc += (w * sum) / (tube.layout.cells * span);
     const { variance, shared } = tubeVariance(tube, tubeState, span);
     independent += w * w * variance * (1 - shared);
     common += w * Math.sqrt(variance * shared);

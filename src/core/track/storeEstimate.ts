@@ -1,3 +1,4 @@
+import { temperatureAt } from '../bed/tables.js';
 import type {
   FrontEstimate,
   FrontReason,
@@ -13,6 +14,7 @@ import { type Covariance, frontSigma } from './frontSigma.js';
 import { type FoundFront, findFronts } from './fronts.js';
 import { referenceEnthalpies, type StoreEnergy } from './storeEnergy.js';
 import type { StoreModel, StoreState } from './storeTracker.js';
+import { streamsOf } from './streams.js';
 import { type TubeModel, type TubeState, tubeTemperatures } from './tube.js';
 
 /** Cell centres of a store's tubes [m]. */
@@ -26,12 +28,12 @@ export function cellCentres(model: StoreModel): Float64Array {
 export function meanTemperatures(model: StoreModel, state: StoreState): Float64Array {
   const cells = (model.tubes[0] as TubeModel).layout.cells;
   const mean = new Float64Array(cells);
-  const own = new Float64Array(cells);
-  model.tubes.forEach((tube, k) => {
-    tubeTemperatures(tube, state.tubes[k] as TubeState, own);
-    const w = tube.string.area_share;
-    for (let i = 0; i < cells; i++) mean[i] = (mean[i] as number) + w * (own[i] as number);
-  });
+  for (const { share, enthalpy } of streamsOf(model, state)) {
+    for (let i = 0; i < cells; i++) {
+      const t = temperatureAt(model.tables, enthalpy[i] as number);
+      mean[i] = (mean[i] as number) + share * t;
+    }
+  }
   return mean;
 }
 
@@ -52,11 +54,21 @@ export function storeFronts(
 /** Energy-equivalent position of the store: the area-weighted mean of its tubes' [m]. */
 export function storeEnergyPosition(model: StoreModel, state: StoreState): number {
   const { charged, discharged } = referenceEnthalpies(model);
-  return model.tubes.reduce((sum, tube, k) => {
-    const { enthalpy } = state.tubes[k] as TubeState;
+  return streamsOf(model, state).reduce((sum, { share, enthalpy }) => {
     const dx = model.store.bed.length_m / enthalpy.length;
-    return sum + tube.string.area_share * energyPosition(enthalpy, dx, charged, discharged);
+    return sum + share * energyPosition(enthalpy, dx, charged, discharged);
   }, 0);
+}
+
+/** Gas that leaves the store, mixed by flow [K]; NaN while standing. */
+export function mixedOutlet(model: StoreModel, state: StoreState): number {
+  let heat = 0;
+  let flow = 0;
+  for (const { share, flowFactor, outlet_K } of streamsOf(model, state)) {
+    heat += share * flowFactor * outlet_K;
+    flow += share * flowFactor;
+  }
+  return heat / flow;
 }
 
 /** What a store publishes, but for the front views and the spread ratio, which come from outside. */
@@ -73,12 +85,7 @@ export function estimateStore(
 ): StoreEstimate {
   const { energy } = extra;
   const { store } = model;
-  let outlet = 0;
-  model.tubes.forEach((tube, k) => {
-    const tubeState = state.tubes[k] as TubeState;
-    const w = tube.string.area_share;
-    outlet += w * tubeState.outlet_K;
-  });
+  const outlet = mixedOutlet(model, state);
   const transfer = meanFactor(model, state, 'transfer');
   return {
     soc: energy.soc,

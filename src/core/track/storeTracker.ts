@@ -24,7 +24,17 @@ import {
   type TubeScratch,
   type TubeState,
   tubeModel,
+  tubeTemperatures,
 } from './tube.js';
+import {
+  followCorrection,
+  resetWall,
+  startWall,
+  stepWall,
+  type WallModel,
+  type WallState,
+  wallModel,
+} from './wallZone.js';
 
 /** What never changes of a store: one tube per string over common property tables. */
 export interface StoreModel {
@@ -35,12 +45,15 @@ export interface StoreModel {
   readonly channels: readonly (readonly number[])[];
   readonly deadbands_K: readonly (readonly number[])[];
   readonly scratch: readonly TubeScratch[];
+  readonly wall: WallModel | null;
 }
 
 /** Everything a store's tracking remembers. */
 export interface StoreState {
   readonly tubes: TubeState[];
   readonly sensors: SensorMemory[][];
+  /** The zone at the wall, null where the definition has no wall steel. */
+  readonly wall: WallState | null;
   started: boolean;
   /** Scans in a row in which most readings stood outside the gate. */
   missed: number;
@@ -65,12 +78,19 @@ export function storeModel(
     channels,
     deadbands_K,
     scratch: tubes.map((tube) => createTubeScratch(tube.layout)),
+    wall: wallModel(tables, tubes),
   };
 }
 
 export function startStore(model: StoreModel): StoreState {
+  const tubes = model.tubes.map(blankTube);
+  const wall = model.wall === null ? null : startWall(model.tubes[0]?.layout.cells ?? 0);
+  if (model.wall !== null && wall !== null) {
+    resetWall(model.tables, wall, tubes[model.wall.tube] as TubeState);
+  }
   return {
-    tubes: model.tubes.map(blankTube),
+    wall,
+    tubes,
     sensors: model.tubes.map((tube) => tube.string.thermocouples.map(freshSensor)),
     started: false,
     missed: 0,
@@ -117,6 +137,17 @@ export function stepStore(
     model.tubes.forEach((tube, k) => {
       predictTube(tube, state.tubes[k] as TubeState, drive, model.scratch[k] as TubeScratch);
     });
+    if (model.wall !== null && state.wall !== null) {
+      const k = model.wall.tube;
+      stepWall(
+        model.wall,
+        model.tubes[k] as TubeModel,
+        state.tubes[k] as TubeState,
+        state.wall,
+        drive,
+        model.scratch[k] as TubeScratch,
+      );
+    }
   }
   if (unknownTravel_m > LOST_TRAVEL_M && usableReadings(model, state, values).length >= 3) {
     restart(model, state, values, REACQUIRE_INFLATION);
@@ -162,12 +193,18 @@ function update(
       state.tubes[k] as TubeState,
       sound.filter((c) => c.tube === k && memoryOf(state, c).verdict === null),
     );
+    const tubeState = state.tubes[k] as TubeState;
+    const beside = model.wall?.tube === k ? state.wall : null;
+    const before = beside && tubeTemperatures(tube, tubeState, new Float64Array(tube.layout.cells));
     applyReadings(
       tube,
-      state.tubes[k] as TubeState,
+      tubeState,
       accepted.filter((c) => c.tube === k),
       (model.scratch[k] as TubeScratch).temperature,
     );
+    if (beside === null || before === null) return;
+    const after = tubeTemperatures(tube, tubeState, new Float64Array(tube.layout.cells));
+    followCorrection(model.tables, beside, before, after);
   });
   state.used = accepted.length;
   return state.used > 0 ? 'updated' : 'predicted';
@@ -349,6 +386,9 @@ function restart(
       sensor: r.tube === k ? r.sensor : -1,
     }));
     startTube(tube, state.tubes[k] as TubeState, start, inflate);
+    if (model.wall?.tube === k && state.wall !== null) {
+      resetWall(model.tables, state.wall, state.tubes[k] as TubeState);
+    }
   });
   state.missed = 0;
   state.settled = 0;

@@ -71,7 +71,9 @@ export function tubeModel(
   // Heat lost through the mantle is felt near the wall first (2 sqrt(alpha t), about 0.6 m a day):
   // the outermost tube carries it all, the inner ones none.
   const outermost = store.strings.reduce((a, b) => (b.radius_m > a.radius_m ? b : a));
-  const share = outermost.id === string.id ? 1 / string.area_share : 0;
+  // Where the wall's steel is known, a zone of its own carries it instead: see wallZone.
+  const zone = (store.bed.wall_capacity_J_m2K ?? 0) > 0;
+  const share = outermost.id === string.id && !zone ? 1 / string.area_share : 0;
   return {
     store,
     string,

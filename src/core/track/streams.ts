@@ -1,0 +1,41 @@
+import type { StoreModel, StoreState } from './storeTracker.js';
+import type { TubeState } from './tube.js';
+
+/** A part of the bed with a profile of its own: a string's tube, or the zone at the wall. */
+export interface Stream {
+  /** Share of the bed's cross-section; those of a store add up to 1. */
+  readonly share: number;
+  readonly enthalpy: Float64Array;
+  readonly outlet_K: number;
+  readonly flowFactor: number;
+  /** On top of the configured heat-transfer factor. */
+  readonly heatTransferFactor: number;
+  readonly wallLoss_W_m3K: number;
+}
+
+/** All streams of a store: what sums over the cross-section run over. */
+export function streamsOf(model: StoreModel, state: StoreState): Stream[] {
+  const { wall } = model;
+  const streams = model.tubes.map((tube, k): Stream => {
+    const own = state.tubes[k] as TubeState;
+    const at = (index: number): number => own.further[index - tube.layout.cells] as number;
+    return {
+      share: tube.string.area_share - (wall?.tube === k ? wall.share : 0),
+      enthalpy: own.enthalpy,
+      outlet_K: own.outlet_K,
+      flowFactor: Math.exp(at(tube.layout.flow)),
+      heatTransferFactor: Math.exp(at(tube.layout.transfer)),
+      wallLoss_W_m3K: tube.wallLoss_W_m3K,
+    };
+  });
+  if (wall === null || state.wall === null) return streams;
+  const beside = streams[wall.tube] as Stream;
+  streams.push({
+    ...beside,
+    share: wall.share,
+    enthalpy: state.wall.enthalpy,
+    outlet_K: state.wall.outlet_K,
+    wallLoss_W_m3K: wall.loss_W_m3K,
+  });
+  return streams;
+}
