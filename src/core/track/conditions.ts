@@ -127,7 +127,9 @@ export function readConditions(
   const standing = Math.abs(flow) < unit.estimator.stand_flow_kg_s;
   state.belowStand = standing ? Math.min(STAND_SCANS, state.belowStand + 1) : 0;
   if (told !== null && told !== 0 && !standing && Math.sign(flow) !== told) state.disagreements++;
-  if (told === 0 && !standing) state.disagreements++;
+  // A meter without a sense has its flow signed by what is told, so only its size can contradict.
+  const unsigned = at(map.flowUnsigned) >= unit.estimator.stand_flow_kg_s;
+  if (told === 0 && (!standing || unsigned)) state.disagreements++;
 
   if (told !== null && told !== 0) state.mode = told > 0 ? 'charge' : 'discharge';
   else if (told === 0) state.mode = 'stand';
@@ -171,7 +173,14 @@ function measuredFlow(
     const charge = at(map.flowOf.charge);
     const discharge = at(map.flowOf.discharge);
     if (!Number.isFinite(charge) && !Number.isFinite(discharge)) return Number.NaN;
-    return (Number.isFinite(charge) ? charge : 0) - (Number.isFinite(discharge) ? discharge : 0);
+    const flow =
+      (Number.isFinite(charge) ? charge : 0) - (Number.isFinite(discharge) ? discharge : 0);
+    // An idle meter says nothing of what its silent fellow would read, unless all is told to stand.
+    const silent = (way: Direction): boolean =>
+      map.flowOf[way] >= 0 && !Number.isFinite(at(map.flowOf[way]));
+    const blind = (silent('charge') && told !== -1) || (silent('discharge') && told !== 1);
+    if (blind && told !== 0 && Math.abs(flow) < unit.estimator.stand_flow_kg_s) return Number.NaN;
+    return flow;
   }
   const byPower = Number.isFinite(power_W) ? Math.sign(power_W) : null;
   const direction = told ?? byPower;
