@@ -174,9 +174,12 @@ function update(
   time_ms: number,
 ): StoreStep {
   const candidates = predictAll(model, state, values);
-  const sound = candidates.filter(
-    (c) => Number.isFinite(c.value_K) && memoryOf(state, c).verdict === null,
-  );
+  const [low, high] = plausibleRange(model);
+  const within = (c: Candidate): boolean => c.value_K >= low && c.value_K <= high;
+  // First the common cause (a card, a cold junction), else half a store's fault passes for a lost estimate.
+  const believed = candidates.filter((c) => within(c) && memoryOf(state, c).verdict === null);
+  rejectFaultyGroups(model, state, believed, time_ms);
+  const sound = believed.filter((c) => memoryOf(state, c).verdict === null);
   const outside = sound.filter((c) => Math.abs(innovation(c)) > GATE_SIGMAS * c.sigma_K);
   if (outside.length >= 3 && outside.length > MISS_SHARE * sound.length) {
     // Most readings miss: the estimate is in doubt, not the sensors, so the verdicts stay.
@@ -186,7 +189,6 @@ function update(
     return 'reacquired';
   }
   state.missed = 0;
-  rejectFaultyGroups(model, state, sound, time_ms);
   const accepted = judgeAll(model, state, candidates, time_ms);
   model.tubes.forEach((tube, k) => {
     followSurprise(
@@ -206,8 +208,23 @@ function update(
     const after = tubeTemperatures(tube, tubeState, new Float64Array(tube.layout.cells));
     followCorrection(model.tables, beside, before, after);
   });
+  rememberExpected(model, state, candidates);
   state.used = accepted.length;
   return state.used > 0 ? 'updated' : 'predicted';
+}
+
+/** What the estimate expects of each thermocouple after the update, for the next scan's judgement. */
+function rememberExpected(
+  model: StoreModel,
+  state: StoreState,
+  candidates: readonly Candidate[],
+): void {
+  const reading: ReadingModel = { value_K: 0, cell: 0, weight: 0, slope_K_m: 0, lag_m: 0 };
+  for (const c of candidates) {
+    const tube = model.tubes[c.tube] as TubeModel;
+    predictReading(tube, state.tubes[c.tube] as TubeState, c.sensor, reading);
+    memoryOf(state, c).expected_K = reading.value_K;
+  }
 }
 
 /** Scans over which a tube's surprise is averaged. */
