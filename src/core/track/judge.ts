@@ -5,10 +5,16 @@ export interface SensorMemory {
   verdict: SensorVerdict | null;
   since_ms: number;
   evidence: string;
-  /** Last reading, when it last changed, and what was predicted then [K]. */
+  /** Last reading, and when it last changed [K]. */
   last_K: number;
   changed_ms: number;
-  predictedAtChange_K: number;
+  /**
+   * How far the bed model alone has moved the rock beside it since then [K]: the sum of its steps,
+   * not the change of the estimate, which a frozen reading holds back.
+   */
+  moved_K: number;
+  /** What the estimate expected after the last scan [K], NaN before the first. */
+  expected_K: number;
   /** Scans in a row outside the gate, and the innovation at the first of them [K]. */
   outside: number;
   firstOutside_K: number;
@@ -25,7 +31,8 @@ export function freshSensor(): SensorMemory {
     evidence: '',
     last_K: Number.NaN,
     changed_ms: 0,
-    predictedAtChange_K: Number.NaN,
+    moved_K: 0,
+    expected_K: Number.NaN,
     outside: 0,
     firstOutside_K: 0,
     sound: 0,
@@ -60,6 +67,8 @@ const STUCK_S = 600;
 /** A stuck sensor must have moved this often again before it is believed. */
 const STUCK_CHANGES = 5;
 const STUCK_MIN_MOVE_K = 4;
+/** An unchanged reading is not used once the rock should have moved by this [K]. */
+const SUSPECT_MOVE_K = 1.5;
 /** A reading that repeats within this is unchanged: below the resolution of usual input cards. */
 const UNCHANGED_K = 0.01;
 
@@ -71,8 +80,9 @@ export type Judgement = 'use' | 'soften' | 'leave_out';
  *
  * - `open`: missing while others of the store deliver; ends with the next reading.
  * - `burst`: outside the range that the plant can produce.
- * - `stuck`: unchanged for 10 min or more while the rock beside it is predicted to have moved by more
- *   than 4 K and six sigma of the innovation. A value that is rightly steady is never stuck.
+ * - `stuck`: unchanged for 10 min or more while the bed model has moved the rock beside it by more
+ *   than 4 K and six sigma of the innovation; it is left out from 1.5 K on. A value that is rightly
+ *   steady is never stuck.
  * - `offset` / `drifting`: five scans in a row outside 4.5 sigma without support from the sensors
  *   beside it; drifting where the innovation grew by a third or more since the first of them.
  *
@@ -95,6 +105,7 @@ export function judgeSensor(memory: SensorMemory, evidence: SensorEvidence): Jud
       const shown = (value - 273.15).toFixed(1);
       set(memory, 'burst', time_ms, `reads ${shown} degC, beyond what the plant can produce`);
     }
+    memory.sound = 0;
     return 'leave_out';
   }
   followChange(memory, evidence);
@@ -116,7 +127,7 @@ function judgeSound(
   within: boolean,
 ): Judgement {
   if (isStuck(memory, evidence)) {
-    const moved = Math.abs(evidence.predicted_K - memory.predictedAtChange_K);
+    const moved = Math.abs(memory.moved_K);
     const minutes = Math.round((evidence.time_ms - memory.changed_ms) / 60_000);
     set(
       memory,
@@ -124,6 +135,9 @@ function judgeSound(
       evidence.time_ms,
       `unchanged for ${minutes} min while the rock there moved by ${moved.toFixed(1)} K`,
     );
+    return 'leave_out';
+  }
+  if (Math.abs(memory.moved_K) > Math.max(SUSPECT_MOVE_K, 2 * evidence.deadband_K)) {
     return 'leave_out';
   }
   if (within || evidence.supported) {
@@ -150,14 +164,16 @@ function followChange(memory: SensorMemory, evidence: SensorEvidence): void {
   if (!(Math.abs(evidence.value_K - memory.last_K) <= threshold)) {
     memory.last_K = evidence.value_K;
     memory.changed_ms = evidence.time_ms;
-    memory.predictedAtChange_K = evidence.predicted_K;
+    memory.moved_K = 0;
     if (memory.verdict !== null && memory.changes < SOUND_SCANS) memory.changes++;
+  } else if (Number.isFinite(memory.expected_K)) {
+    memory.moved_K += evidence.predicted_K - memory.expected_K;
   }
 }
 
 function isStuck(memory: SensorMemory, evidence: SensorEvidence): boolean {
   if (evidence.time_ms - memory.changed_ms < STUCK_S * 1000) return false;
-  const moved = Math.abs(evidence.predicted_K - memory.predictedAtChange_K);
+  const moved = Math.abs(memory.moved_K);
   return moved > Math.max(STUCK_MIN_MOVE_K, 6 * evidence.sigma_K, 2 * evidence.deadband_K);
 }
 
