@@ -5,8 +5,9 @@ import { hoursInput } from './dispatch/unitHours.js';
 import type { DispatchAnswer, Estimate, ProfileView } from './estimate.js';
 import type { Scan } from './scan/scan.js';
 import { startConditions } from './track/conditions.js';
-import { startStore } from './track/storeTracker.js';
+import { type StoreState, startStore } from './track/storeTracker.js';
 import { startViews } from './track/storeViews.js';
+import type { TubeState } from './track/tube.js';
 import { describe } from './unitDescribe.js';
 import { unitModel } from './unitModel.js';
 import type { UnitState } from './unitState.js';
@@ -119,17 +120,27 @@ export function restoreUnit(unit: UnitDefinition, snapshot: UnitSnapshot): UnitS
     throw new RangeError(`snapshot version ${snapshot.version}: expected ${SNAPSHOT_VERSION}`);
   }
   const model = unitModel(unit);
+  const { stores } = snapshot.state;
+  requireShape(`unit ${unit.id}`, 'stores', stores.length, model.stores.length);
   model.stores.forEach((store, s) => {
-    store.tubes.forEach((tube, k) => {
-      const size = snapshot.state.stores[s]?.tubes[k]?.covariance.length;
-      if (size !== tube.layout.size ** 2) {
-        throw new RangeError(
-          `snapshot of string ${tube.string.id}: covariance has ${size} elements, expected ${tube.layout.size ** 2}`,
-        );
-      }
+    const { tubes, sensors, wall } = stores[s] as StoreState;
+    const name = `store ${store.store.id}`;
+    requireShape(name, 'strings', tubes.length, store.tubes.length);
+    requireShape(name, 'zones at the wall', wall ? 1 : 0, store.wall === null ? 0 : 1);
+    store.tubes.forEach(({ string, layout }, k) => {
+      const tube = tubes[k] as TubeState;
+      const own = `string ${string.id}`;
+      requireShape(own, 'cells', tube.enthalpy.length, layout.cells);
+      requireShape(own, 'thermocouples', sensors[k]?.length, layout.sensors);
+      requireShape(own, 'elements of covariance', tube.covariance.length, layout.size ** 2);
     });
   });
   return structuredClone(snapshot.state);
+}
+
+function requireShape(of: string, what: string, found: number | undefined, expected: number): void {
+  if (found === expected) return;
+  throw new RangeError(`snapshot of ${of}: has ${found} ${what}, expected ${expected}`);
 }
 
 /** Hours and energy at given powers [W] from the present state. */
