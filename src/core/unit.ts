@@ -55,6 +55,8 @@ export function startUnit(unit: UnitDefinition): UnitState {
     mode: 'stand',
     charge: null,
     unknownTravel_m: model.stores.map(() => 0),
+    ambient_K: unit.ambient_K,
+    plenum_K: model.stores.map(() => Number.NaN),
   };
 }
 
@@ -150,6 +152,6 @@ export function hoursAt(
   powers_W: readonly number[],
 ): DispatchAnswer[] {
   const model = unitModel(unit);
-  const input = hoursInput(model, state, null, unit.ambient_K);
+  const input = hoursInput(model, state);
   return powers_W.map((power) => computeHours(input, power));
 }

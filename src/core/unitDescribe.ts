@@ -30,7 +30,7 @@ export function describe(model: UnitModel, state: UnitState, taken: Taken, ask: 
       energy,
     });
   });
-  const input = hoursInput(model, state, scan, taken.conditions.ambient_K);
+  const input = hoursInput(model, state);
   const time = new Date(scan.time_ms).toISOString();
   const estimate: Estimate = {
     time,

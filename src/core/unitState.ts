@@ -21,4 +21,7 @@ export interface UnitState {
   /** Last state of charge by rollout, when, and the least store state of charge then. */
   charge: { value: number; time_ms: number; least: number } | null;
   readonly unknownTravel_m: number[];
+  /** Of the last scan: ambient, and the gas leaving each store while discharging, NaN = not measured [K]. */
+  ambient_K: number;
+  readonly plenum_K: number[];
 }

@@ -80,6 +80,12 @@ export function takeIn(model: UnitModel, state: UnitState, raw: Scan): Taken {
   const modeChanged = conditions.mode !== state.mode;
   learnMachine(model, state, conditions, dt_s, modeChanged, outlets);
   state.mode = conditions.mode;
+  state.ambient_K = conditions.ambient_K;
+  model.stores.forEach((store, s) => {
+    const channel = model.map.gas[store.store.id]?.charge_inlet ?? -1;
+    const read = channel >= 0 ? (scan.values[channel] as number) : Number.NaN;
+    state.plenum_K[s] = conditions.mode === 'discharge' ? read : Number.NaN;
+  });
   state.time_ms = scan.time_ms;
   const readings = scan.values.reduce((n, v) => n + (Number.isFinite(v) ? 1 : 0), 0);
   return { scan, implausible, conditions, stores, thermocouples, readings, modeChanged };

@@ -59,24 +59,15 @@ export function learnMachine(
   );
 }
 
-export function hoursInput(
-  model: UnitModel,
-  state: UnitState,
-  scan: Scan | null,
-  ambient_K: number,
-): HoursInput {
+export function hoursInput(model: UnitModel, state: UnitState): HoursInput {
   return {
     unit: model.unit,
     machine: model.machine,
     models: model.stores,
     states: state.stores,
-    plenum_K: model.stores.map((store) => {
-      const channel = model.map.gas[store.store.id]?.charge_inlet ?? -1;
-      const read = channel >= 0 && scan !== null ? (scan.values[channel] as number) : Number.NaN;
-      return state.mode === 'discharge' ? read : Number.NaN;
-    }),
+    plenum_K: state.plenum_K,
     workFactor: machineFactor(state.factors.discharge, meanFlowFactor(model, state)),
-    ambient_K,
+    ambient_K: state.ambient_K,
   };
 }
 

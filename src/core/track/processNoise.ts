@@ -22,7 +22,7 @@ const SHAPE_PER_METRE_M = 0.02; // [m per sqrt(m)], from the ring truth's isothe
 const SHAPE_LENGTH_M = 0.3;
 const STANDING_K_PER_SQRT_H = 0.05;
 const FLOW_WALK_PER_SQRT_H = 0.01;
-const TRANSFER_WALK_PER_SQRT_H = 0.03;
+const TRANSFER_WALK_PER_SQRT_H = 0.06;
 const SHARE_WALK_PER_SQRT_H = 0.02;
 const HOUR_S = 3600;
 /**
