@@ -1,0 +1,224 @@
+import type { RowPlan, Scenario } from './scenarios.js';
+import { bestShiftedPinball, binomialInterval, pinball } from './statistics.js';
+import { type HoursSample, mergeSum, type RowResult, rmsOf, type Sum, sumOf } from './tally.js';
+
+/** One figure of the table. */
+export interface Figure {
+  readonly name: string;
+  readonly value: number | null;
+  readonly unit: string;
+  /** What the goal is, in words; null where there is none. */
+  readonly target: string | null;
+  readonly met: boolean | null;
+  readonly note: string;
+}
+
+const RATIO = [0.8, 1.25] as const;
+
+/** Sums of all runs of a row together. */
+export function pooled(results: readonly RowResult[]): Record<string, Sum> {
+  const sums: Record<string, Sum> = {};
+  for (const result of results) {
+    for (const [name, sum] of Object.entries(result.sums)) {
+      mergeSum(sumOf(sums, name), sum);
+    }
+  }
+  return sums;
+}
+
+export function figure(
+  name: string,
+  value: number | null,
+  unit: string,
+  target: { most?: number; least?: number } | null = null,
+  note = '',
+): Figure {
+  if (target === null) return { name, value, unit, target: null, met: null, note };
+  const { most, least } = target;
+  const words =
+    least === undefined ? `<= ${most}` : most === undefined ? `>= ${least}` : `${least}..${most}`;
+  const met =
+    value === null
+      ? false
+      : value <= (most ?? Number.POSITIVE_INFINITY) && value >= (least ?? Number.NEGATIVE_INFINITY);
+  return { name, value, unit, target: words, met, note };
+}
+
+/** Figures that every row has. */
+export function commonFigures(
+  scenario: Scenario,
+  row: RowPlan,
+  results: readonly RowResult[],
+  rated: { readonly hours: number },
+): Figure[] {
+  const sums = pooled(results);
+  const goals = row.set === 'three' ? null : GOALS[row.set];
+  const at = (name: string) => sums[name]?.at ?? '';
+  const worst = (name: string) => (sums[name] ? Math.abs(sums[name].worst) : null);
+  const out: Figure[] = [];
+  const apart = row.errors === 'class';
+  if (apart) {
+    for (const store of ['hot', 'cold'] as const) {
+      const goal = goals && { most: goals.class[store] };
+      out.push(figure(`state of charge, ${store}, rms`, rmsOf(sums[`soc ${store}`]), '%', goal));
+    }
+  } else {
+    out.push(figure('state of charge, rms', rmsOf(sums.soc), '%', goals && { most: goals.soc[0] }));
+  }
+  out.push(
+    figure(
+      'state of charge, worst',
+      worst('soc'),
+      '%',
+      goals && !apart ? { most: goals.soc[1] } : null,
+      at('soc'),
+    ),
+    figure('  straight lines, rms', rmsOf(sums['line soc']), '%'),
+    figure('  straight lines, worst', worst('line soc'), '%', null, at('line soc')),
+    figure('  rock at the strings against the store, rms', rmsOf(sums['seen soc']), '%'),
+    figure('stored heat, rms', rmsOf(sums.stored), 'MWh_th', null, at('stored')),
+    figure('front position, rms', rmsOf(sums.position), 'm', goals && { most: goals.position }),
+    figure('front width, rms', rmsOf(sums.width), 'm'),
+    figure(
+      'fronts counted differently',
+      share(results.map((r) => ({ hits: r.fronts.unmatched, cases: r.fronts.all }))),
+      '%',
+    ),
+  );
+  for (const [name, words, goal] of [
+    ['soc', 'state of charge', true],
+    ['stored', 'stored heat', true],
+    ['position', 'front position', false],
+  ] as const) {
+    out.push(
+      figure(
+        `truth over sigma, ${words}, rms`,
+        rmsOf(sums[`${name}/sigma`]),
+        '',
+        goals && goal ? { least: RATIO[0], most: RATIO[1] } : null,
+        at(`${name}/sigma`),
+      ),
+    );
+  }
+  if (scenario.hours) out.push(...hoursFigures(scenario, row, results, sums, rated.hours));
+  const healthy = results.reduce((sum, r) => sum + r.rejections.length, 0);
+  const days = results.reduce((sum, r) => sum + r.scored_h, 0) / 24;
+  if (scenario.healthy) {
+    out.push(
+      figure('sensors wrongly named', healthy, '', { most: 0 }, `in ${days.toFixed(0)} unit-days`),
+    );
+  }
+  const broken = results.reduce((sum, r) => sum + r.not_finite, 0);
+  out.push(figure('estimates that are not finite', broken, '', { most: 0 }));
+  return out;
+}
+
+/** What is to be reached with each sensor set; state of charge and hours as rms (and worst). */
+const GOALS = {
+  all: {
+    soc: [0.1, 0.3],
+    class: { hot: 0.4, cold: 0.8 },
+    hours_h: 0.03,
+    hours_rated: 1.5,
+    position: 0.03,
+  },
+  five: {
+    soc: [0.25, 0.7],
+    class: { hot: 0.4, cold: 0.8 },
+    hours_h: 0.08,
+    hours_rated: 2.5,
+    position: 0.06,
+  },
+} as const;
+
+function share(groups: readonly { hits: number; cases: number }[]): number | null {
+  const cases = groups.reduce((sum, g) => sum + g.cases, 0);
+  return cases === 0 ? null : (100 * groups.reduce((sum, g) => sum + g.hits, 0)) / cases;
+}
+
+function hoursFigures(
+  scenario: Scenario,
+  row: RowPlan,
+  results: readonly RowResult[],
+  sums: Record<string, Sum>,
+  ratedHours: number,
+): Figure[] {
+  const goals = row.set === 'three' ? null : GOALS[row.set];
+  const counted = (r: RowResult) => r.hours.filter((h) => h.truth > 0);
+  const all = results.flatMap(counted);
+  const late = all.filter((h) => h.at_h >= scenario.cycle_h);
+  const known = scenario.truth.machine === 'known';
+  const rms = (samples: readonly HoursSample[], of: (h: HoursSample) => number) =>
+    samples.length === 0
+      ? null
+      : Math.sqrt(samples.reduce((sum, h) => sum + (of(h) - h.truth) ** 2, 0) / samples.length);
+  const lateRms = rms(late, (h) => h.p50);
+  const out: Figure[] = [
+    figure(
+      'hours at 60 % power, rms',
+      rms(all, (h) => h.p50),
+      'h',
+      goals && known ? { most: goals.hours_h } : null,
+      sums.hours ? `worst ${sums.hours.worst.toFixed(3)} h, ${sums.hours.at}` : '',
+    ),
+    figure(
+      '  after one cycle, rms',
+      lateRms === null ? null : (100 * lateRms) / ratedHours,
+      '% of rated',
+      goals && !known ? { most: goals.hours_rated } : null,
+    ),
+    figure(
+      '  heat over heat rate, rms',
+      rms(all, (h) => h.line),
+      'h',
+    ),
+    figure(
+      'truth over sigma, hours, rms',
+      rmsOf(sums['hours/sigma']),
+      '',
+      goals && { least: RATIO[0], most: RATIO[1] },
+      sums['hours/sigma']?.at ?? '',
+    ),
+  ];
+  const within = (name: string, p: number, hit: (h: HoursSample) => boolean) => {
+    const groups = results.map((r) => {
+      const cases = counted(r);
+      return { hits: cases.filter(hit).length, cases: cases.length };
+    });
+    const b = binomialInterval(p, groups);
+    const target = {
+      least: Number((100 * b.low).toFixed(1)),
+      most: Number((100 * b.high).toFixed(1)),
+    };
+    const note = `${b.cases} cases that count as ${b.effective.toFixed(0)}`;
+    return figure(name, b.cases === 0 ? null : 100 * b.share, '%', goals && target, note);
+  };
+  out.push(
+    within('truth below p90', 0.1, (h) => h.truth < h.p90),
+    within('truth inside p90..p10', 0.8, (h) => h.truth >= h.p90 && h.truth <= h.p10),
+  );
+  for (const [name, tau] of [
+    ['p90', 0.1],
+    ['p50', 0.5],
+  ] as const) {
+    if (all.length === 0) continue;
+    const own = pinball(
+      tau,
+      all.map((h) => ({ truth: h.truth, quantile: h[name] })),
+    );
+    const line = bestShiftedPinball(
+      tau,
+      all.map((h) => ({ truth: h.truth, forecast: h.line })),
+    );
+    out.push(
+      figure(
+        `pinball loss of ${name}`,
+        own,
+        'h',
+        goals && { most: Number(line.loss.toPrecision(4)) },
+        `straight lines at their best, ${line.shift.toFixed(2)} h added`,
+      ),
+    );
+  }
+  return out;
+}

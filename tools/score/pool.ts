@@ -1,0 +1,52 @@
+import { type ChildProcess, fork } from 'node:child_process';
+import { fileURLToPath } from 'node:url';
+import type { Hashes, Job } from './job.js';
+
+const WORKERS = 2;
+
+/**
+ * Runs jobs in two processes. A job that fails is told and counted; the others go on.
+ * @returns the failures
+ */
+export async function runJobs(
+  jobs: readonly Job[],
+  hashes: Hashes,
+  done: (job: Job) => void,
+): Promise<{ job: Job; error: string }[]> {
+  const waiting = [...jobs];
+  const failures: { job: Job; error: string }[] = [];
+  const workers = Array.from({ length: Math.min(WORKERS, jobs.length) }, () =>
+    work(waiting, hashes, (job, error) => {
+      if (error !== undefined) failures.push({ job, error });
+      done(job);
+    }),
+  );
+  await Promise.all(workers);
+  return failures;
+}
+
+function work(
+  waiting: Job[],
+  hashes: Hashes,
+  done: (job: Job, error?: string) => void,
+): Promise<void> {
+  const file = fileURLToPath(new URL('worker.ts', import.meta.url));
+  const child: ChildProcess = fork(file, { execArgv: ['--import', 'tsx'] });
+  return new Promise((resolve) => {
+    let running: Job | undefined;
+    const next = () => {
+      running = waiting.shift();
+      if (running) child.send({ job: running, hashes });
+      else child.disconnect();
+    };
+    child.on('message', ({ job, error }: { job: Job; error?: string }) => {
+      done(job, error);
+      next();
+    });
+    child.on('exit', (code, signal) => {
+      if (running) done(running, `its process ended: ${signal ?? code}`);
+      resolve();
+    });
+    next();
+  });
+}
