@@ -46,4 +46,7 @@ export function checkUnit(service: PlantService, unit: string | undefined): void
 }
 
 /** The documented answers beside the good one. */
-export const faults = { '4xx': faultSchema, '5xx': faultSchema } as const;
+export const faults = {
+  '4xx': faultSchema.describe('The question is wrong: what, where and what was expected'),
+  '5xx': faultSchema.describe('The question is right, but there is no answer: why'),
+} as const;

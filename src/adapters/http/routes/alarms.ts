@@ -22,10 +22,11 @@ export const alarmRoutes: Routes = (app, { service, stream }) => {
     '/api/alarms',
     {
       schema: {
+        operationId: 'alarms',
         summary: 'Alarms and alerts that stand, or have returned unacknowledged',
         tags,
         querystring: alarmsQuery,
-        response: { 200: alarmsSchema, ...faults },
+        response: { 200: alarmsSchema.describe('What stands'), ...faults },
       },
     },
     async (request) => {
@@ -38,11 +39,12 @@ export const alarmRoutes: Routes = (app, { service, stream }) => {
     '/api/events',
     {
       schema: {
+        operationId: 'events',
         summary: 'Alarms and alerts raised and returned',
         description: 'Without from and to: the 24 h before the newest estimate.',
         tags,
         querystring: eventsQuery,
-        response: { 200: eventsSchema, ...faults },
+        response: { 200: eventsSchema.describe('Events in the span'), ...faults },
       },
     },
     async (request) => {
@@ -61,11 +63,12 @@ export const alarmRoutes: Routes = (app, { service, stream }) => {
     '/api/alarms/acknowledge',
     {
       schema: {
+        operationId: 'acknowledge',
         summary: 'Acknowledge an alarm or alert',
         description: 'Recorded with the name given; it changes nothing at the plant.',
         tags,
         body: acknowledgeBody,
-        response: { 200: acknowledgedSchema, ...faults },
+        response: { 200: acknowledgedSchema.describe('Recorded'), ...faults },
       },
     },
     async (request) => {

@@ -52,6 +52,7 @@ export const historyRoutes: Routes = (app, { service }) => {
     '/api/units/:unit/history',
     {
       schema: {
+        operationId: 'history',
         summary: 'Stored series of a unit, thinned evenly to a number of points',
         description:
           'Without from and to: the 24 h before the newest estimate. CSV by ?format=csv or ' +

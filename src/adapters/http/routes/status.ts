@@ -20,10 +20,14 @@ export const statusRoutes: Routes = (app, context) => {
     {
       config,
       schema: {
+        operationId: 'health',
         summary: 'Whether every part of the daemon is well',
         description: '200 if so, else 503; the body is the same.',
         tags,
-        response: { 200: healthSchema, 503: healthSchema },
+        response: {
+          200: healthSchema.describe('Every part is well'),
+          503: healthSchema.describe('At least one part is not well'),
+        },
       },
     },
     async (_request, reply) => {
@@ -38,9 +42,10 @@ export const statusRoutes: Routes = (app, context) => {
     '/api/counters',
     {
       schema: {
+        operationId: 'counters',
         summary: 'Counts of the daemon',
         tags,
-        response: { 200: countersSchema, ...faults },
+        response: { 200: countersSchema.describe('Counts since the start, by name'), ...faults },
       },
     },
     async () => ({ counters: { ...service.counters(), ...ownCounters(context) } }),
@@ -51,9 +56,15 @@ export const statusRoutes: Routes = (app, context) => {
     {
       config,
       schema: {
+        operationId: 'metrics',
         summary: 'The same for Prometheus',
         tags,
-        response: { 200: { content: { 'text/plain': { schema: z.string() } } } },
+        response: {
+          200: {
+            description: 'Text exposition format',
+            content: { 'text/plain': { schema: z.string() } },
+          },
+        },
       },
     },
     async (_request, reply) => {

@@ -1,6 +1,7 @@
 import type { FastifyReply } from 'fastify';
+import { z } from 'zod';
 import { HttpFault, unknownUnit } from '../faults.js';
-import type { Routes } from '../routes.js';
+import { faults, type Routes } from '../routes.js';
 import { streamQuery } from '../schema/questions.js';
 import type { StreamSink } from '../stream-client.js';
 
@@ -47,6 +48,7 @@ export const streamRoutes: Routes = (app, { service, stream, tuning }) => {
       // `manual`: the plugin's own refusal would not have the form of our errors.
       sse: { kind: 'manual', heartbeat: false },
       schema: {
+        operationId: 'stream',
         summary: 'Live stream',
         description:
           'Server-Sent Events: hello, state, event, alarms, beat. After a loss, send the last id as ' +
@@ -54,7 +56,13 @@ export const streamRoutes: Routes = (app, { service, stream, tuning }) => {
           'were missed that are no longer kept.',
         tags: ['live'],
         querystring: streamQuery,
-        produces: ['text/event-stream'],
+        response: {
+          200: {
+            description: 'Events as they come',
+            content: { 'text/event-stream': { schema: z.string() } },
+          },
+          ...faults,
+        },
       },
     },
     async (request, reply) => {

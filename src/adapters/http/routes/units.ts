@@ -45,9 +45,10 @@ export const unitRoutes: Routes = (app, { service, tuning }) => {
     '/api/units',
     {
       schema: {
+        operationId: 'units',
         summary: 'All units at a glance',
         tags,
-        response: { 200: unitListSchema, ...faults },
+        response: { 200: unitListSchema.describe('The units of the site'), ...faults },
       },
     },
     async () => ({
@@ -75,10 +76,14 @@ export const unitRoutes: Routes = (app, { service, tuning }) => {
     '/api/units/:unit',
     {
       schema: {
+        operationId: 'unit',
         summary: 'A unit now: definition, estimate, hours, age of its data',
         tags,
         params: unitParams,
-        response: { 200: unitNowSchema, ...faults },
+        response: {
+          200: unitNowSchema.describe('The unit now; estimate and hours are null before the first'),
+          ...faults,
+        },
       },
     },
     async (request) => {
@@ -91,10 +96,11 @@ export const unitRoutes: Routes = (app, { service, tuning }) => {
     '/api/units/:unit/profile',
     {
       schema: {
+        operationId: 'profile',
         summary: 'Temperatures along each store: estimate, sigma and readings',
         tags,
         params: unitParams,
-        response: { 200: unitProfileSchema, ...faults },
+        response: { 200: unitProfileSchema.describe('The newest profile'), ...faults },
       },
     },
     async (request) => {
@@ -109,11 +115,12 @@ export const unitRoutes: Routes = (app, { service, tuning }) => {
     {
       config: { rateLimit: { max: tuning.hours_per_min, timeWindow: 60_000 } },
       schema: {
+        operationId: 'hours',
         summary: 'Hours and energy left at given powers, from the present estimate',
         tags,
         params: unitParams,
         querystring: hoursQuery,
-        response: { 200: unitHoursSchema, ...faults },
+        response: { 200: unitHoursSchema.describe('An answer per power asked for'), ...faults },
       },
     },
     async (request) => {
