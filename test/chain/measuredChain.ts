@@ -117,7 +117,7 @@ export async function runChain(
   const mosquitto = await startMosquitto(programs.mosquitto);
   const influx = await startInflux(programs.influxd);
   const path = writeSite(units, mosquitto.url, influx.url);
-  const daemon = new RockhourProcess(['run', '--config', path]);
+  const daemon = new RockhourProcess(['run', '--config', path], true);
   try {
     const [, page] = / page=(\S+)/.exec(await daemon.ready())!;
     await waitFor('the broker', () => daemon.stderr.includes('connected to the MQTT broker'));

@@ -10,7 +10,8 @@ export class RockhourProcess {
   private readonly child: ChildProcess;
   private readonly exit: Promise<number | null>;
 
-  constructor(args: readonly string[]) {
+  /** @param outlives true: it lives on after the test at hand, and whoever started it ends it */
+  constructor(args: readonly string[], outlives = false) {
     this.child = startRockhour(args);
     this.child.stdout?.on('data', (chunk: Buffer) => {
       this.stdout += chunk.toString();
@@ -19,7 +20,7 @@ export class RockhourProcess {
       this.stderr += chunk.toString();
     });
     this.exit = new Promise((resolve) => this.child.once('close', resolve));
-    later(() => this.end('SIGKILL'));
+    if (!outlives) later(() => this.end('SIGKILL'));
   }
 
   /** The ready line, once it is there. */

@@ -1,0 +1,264 @@
+import { readFileSync } from 'node:fs';
+import { connectAsync } from 'mqtt';
+import { afterAll, beforeAll, describe, expect, it } from 'vitest';
+import { z } from 'zod';
+import { ReadingPublisher } from '../../src/adapters/mqtt/readingPublisher.js';
+import { loadSite } from '../../src/config/load.js';
+import { createDemoPlant } from '../../src/plant/demoPlant.js';
+import { RockhourProcess } from '../daemon/processes.js';
+import { siteFile } from '../daemon/siteFile.js';
+import { requireProgram } from '../support/requirements.js';
+import { type Service, startMosquitto } from '../support/services.js';
+import { waitFor } from '../support/wait.js';
+import { answerSchema, faultsOf, type OpenApiDocument, operations } from './openApi.js';
+import { contractLine } from './replayContract.js';
+
+/**
+ * What a running daemon tells: retained topics at a real broker, and the HTTP API against its own
+ * OpenAPI document. The plant is the one of the demonstration, with a thermocouple that is cut off.
+ */
+const mosquitto = requireProgram('mosquitto');
+const SCANS = 40;
+const CUT = 'hot_axis_03';
+const ALERT = `vellmoor/sensor_rejected/${CUT}`;
+
+interface Heard {
+  readonly content: Record<string, unknown>;
+  readonly retain: boolean;
+}
+
+/** What the broker has for a client that comes now: the newest of each topic, with its flag. */
+async function listen(url: string): Promise<{
+  heard: Map<string, Heard>;
+  end: () => Promise<void>;
+}> {
+  const client = await connectAsync(url);
+  const heard = new Map<string, Heard>();
+  client.on('message', (topic, payload, packet) => {
+    const content = JSON.parse(payload.toString()) as Record<string, unknown>;
+    heard.set(topic, { content, retain: packet.retain });
+  });
+  await client.subscribeAsync('rockhour/#');
+  return { heard, end: () => client.endAsync(true) };
+}
+
+describe.skipIf(!mosquitto)('a running daemon', () => {
+  let broker: Service;
+  let daemon: RockhourProcess;
+  let config: string;
+  let page: string;
+  let first_ms: number;
+
+  async function startDaemon(): Promise<void> {
+    daemon = new RockhourProcess(['run', '--config', config], true);
+    [, page] = / page=(\S+)\//.exec(await daemon.ready())! as unknown as [string, string];
+    await waitFor('the broker', () => daemon.stderr.includes('connected to the MQTT broker'));
+  }
+
+  beforeAll(async () => {
+    broker = await startMosquitto(mosquitto!);
+    config = siteFile({ mqtt: { url: broker.url, client_id: 'outputs-test' } }).path;
+    await startDaemon();
+    const site = loadSite(config);
+    const unit = site.units[0]!;
+    const gateway = new ReadingPublisher(broker.url, site.sources);
+    await gateway.start();
+    const plant = createDemoPlant(unit);
+    const steps = Array.from({ length: SCANS }, () => plant.step());
+    // Fresh readings: the last one is of now.
+    const shift_ms = Math.floor((Date.now() - steps.at(-1)!.time_ms) / 30_000) * 30_000;
+    first_ms = steps[0]!.time_ms + shift_ms;
+    for (const { time_ms, values } of steps) {
+      await gateway.readings(unit.id, time_ms + shift_ms, { ...values, [CUT]: null });
+    }
+    await gateway.stop();
+    await waitFor(
+      'the last scan',
+      async () => (await get('/api/counters')).body.counters.scans >= SCANS,
+      30_000,
+    );
+  }, 90_000);
+
+  afterAll(async () => {
+    await daemon?.end('SIGKILL');
+    await broker?.stop();
+  });
+
+  // biome-ignore lint/suspicious/noExplicitAny: what a client sees, unknown beforehand
+  async function get(path: string): Promise<{ status: number; type: string; body: any }> {
+    const answer = await fetch(`${page}${path}`);
+    const type = (answer.headers.get('content-type') ?? '').split(';')[0]!;
+    const body = type === 'application/json' ? await answer.json() : await answer.text();
+    return { status: answer.status, type, body };
+  }
+
+  it('has said state, hours, alarms and heartbeat, retained, for whoever comes later', async () => {
+    const { heard, end } = await listen(broker.url);
+    const topics = ['rockhour/heartbeat', 'rockhour/vellmoor/alarms'];
+    topics.push('rockhour/vellmoor/dispatch', 'rockhour/vellmoor/state');
+    await waitFor('all topics', () => topics.every((topic) => heard.has(topic)));
+    expect([...heard.keys()].sort()).toEqual(topics);
+    const of = (topic: string) => heard.get(topic)!.content;
+    // The state is a line of the replay without its events.
+    const state = contractLine.omit({ events: true }).strict().parse(of(topics[3]!));
+    expect(state.unit).toBe('vellmoor');
+    const now = (await get('/api/units/vellmoor')).body;
+    expect(state.time).toBe(now.estimate.time);
+    expect(state.state_of_charge).toBe(now.estimate.state_of_charge);
+    const dispatch = z
+      .strictObject({ time: z.string(), unit: z.string(), answers: contractLine.shape.dispatch })
+      .parse(of(topics[2]!));
+    expect(dispatch.answers!.map(({ power_MW }) => power_MW)).toEqual([1.8, 1.2]);
+    expect(dispatch.answers).toEqual(now.dispatch.answers);
+    const alarms = of(topics[1]!) as { standing: { id: string }[] };
+    expect(Object.keys(alarms).sort()).toEqual(['last', 'standing', 'time', 'unit']);
+    expect(alarms.standing.map(({ id }) => id)).toContain(ALERT);
+    const beat = z
+      .strictObject({
+        status: z.literal('online'),
+        time: z.iso.datetime(),
+        site: z.string(),
+        version: z.string(),
+        uptime_s: z.int().min(0),
+      })
+      .parse(of(topics[0]!));
+    expect(Math.abs(Date.parse(beat.time) - Date.now())).toBeLessThan(60_000);
+    for (const topic of topics) expect(heard.get(topic)!.retain, topic).toBe(true);
+    // It beats every 10 s, now as news.
+    await waitFor('the next beat', () => !heard.get(topics[0]!)!.retain, 15_000);
+    const next = of(topics[0]!) as { uptime_s: number };
+    expect(next.uptime_s).toBeGreaterThan(beat.uptime_s);
+    await end();
+  }, 30_000);
+
+  describe('its OpenAPI document', () => {
+    let document: OpenApiDocument;
+    beforeAll(async () => {
+      document = (await get('/api/openapi.json')).body as OpenApiDocument;
+    });
+
+    it('is valid, and says something about each answer', () => {
+      expect(faultsOf(document)).toEqual([]);
+    });
+
+    it('has every route that README.md names', () => {
+      const readme = readFileSync(new URL('../../README.md', import.meta.url), 'utf8');
+      const named = [...readme.matchAll(/`(?:GET|POST)? ?(\/(?:api\/[\w/{}]+|metrics))[`?]/g)];
+      const routes = new Set(named.map(([, route]) => route!));
+      routes.delete('/api/openapi.json');
+      expect([...routes].sort()).toEqual(Object.keys(document.paths).sort());
+    });
+
+    /** Questions to each route that are answered, by path of the document. */
+    const ASKED: Readonly<Record<string, readonly string[]>> = {
+      '/api/health': [''],
+      '/api/counters': [''],
+      '/metrics': [''],
+      '/api/units': [''],
+      '/api/units/{unit}': [''],
+      '/api/units/{unit}/profile': [''],
+      '/api/units/{unit}/hours': ['?power_MW=1.8,1.2', '?power_MW=1'],
+      '/api/units/{unit}/history': ['', '?points=5', '?series=state_of_charge', '?format=csv'],
+      '/api/alarms': ['', '?unit=vellmoor'],
+      '/api/events': ['', '?unit=vellmoor&most=3'],
+    };
+    /** And such as are not. */
+    const REFUSED = [
+      ['/api/units/{unit}', '/api/units/nowhere', 404],
+      ['/api/units/{unit}/hours', '/api/units/vellmoor/hours?power_MW=all', 400],
+      ['/api/units/{unit}/history', '/api/units/vellmoor/history?from=noon', 400],
+      ['/api/alarms', '/api/alarms?unit=nowhere', 400],
+      ['/api/stream', '/api/stream?profile=nowhere', 400],
+    ] as const;
+
+    it('describes every answer to the last key', async () => {
+      const rest = operations(document).filter(([path]) => !(path in ASKED));
+      expect(rest.map(([path]) => path).sort()).toEqual(['/api/alarms/acknowledge', '/api/stream']);
+      for (const [path, queries] of Object.entries(ASKED)) {
+        const operation = document.paths[path]!.get!;
+        for (const query of queries) {
+          const { status, type, body } = await get(`${path.replace('{unit}', 'vellmoor')}${query}`);
+          expect(status, `${path}${query}`).toBe(200);
+          const checked = answerSchema(operation, status, type).safeParse(body);
+          expect(checked.error?.issues ?? [], `${path}${query}`).toEqual([]);
+        }
+      }
+      for (const [path, question, expected] of REFUSED) {
+        const { status, type, body } = await get(question);
+        expect(status, question).toBe(expected);
+        const checked = answerSchema(document.paths[path]!.get!, status, type).safeParse(body);
+        expect(checked.error?.issues ?? [], question).toEqual([]);
+      }
+    });
+
+    it('would notice an answer that differs from it', async () => {
+      const schema = answerSchema(document.paths['/api/units']!.get!, 200, 'application/json');
+      const { body } = await get('/api/units');
+      expect(schema.safeParse(body).success).toBe(true);
+      expect(schema.safeParse({ ...body, more: 1 }).success).toBe(false);
+      const { site: _, ...less } = body;
+      expect(schema.safeParse(less).success).toBe(false);
+      expect(schema.safeParse({ ...body, site: 1 }).success).toBe(false);
+    });
+
+    it('describes what acknowledges an alert, and the stream', async () => {
+      const { post } = document.paths['/api/alarms/acknowledge']!;
+      const say = async (content: object) => {
+        const answer = await fetch(`${page}/api/alarms/acknowledge`, {
+          method: 'POST',
+          headers: { 'content-type': 'application/json' },
+          body: JSON.stringify(content),
+        });
+        const schema = answerSchema(post!, answer.status, 'application/json');
+        const body: unknown = await answer.json();
+        expect(schema.safeParse(body).error?.issues ?? []).toEqual([]);
+        return { status: answer.status, body };
+      };
+      expect((await say({ id: ALERT, who: 'night shift' })).body).toMatchObject({
+        acknowledged_by: 'night shift',
+        standing: { id: ALERT, state: 'acknowledged' },
+      });
+      expect((await say({ id: 'vellmoor/none', who: 'x' })).status).toBe(404);
+      expect((await say({ who: 'x' })).status).toBe(400);
+      const stream = document.paths['/api/stream']!.get!.responses['200']!;
+      expect(Object.keys(stream.content!)).toEqual(['text/event-stream']);
+      const answer = await fetch(`${page}/api/stream`);
+      expect(answer.headers.get('content-type')).toMatch(/^text\/event-stream/);
+      await answer.body!.cancel();
+    });
+  });
+
+  it('is well in each part while readings come, and gives the history that it has stored', async () => {
+    const health = await get('/api/health');
+    expect(health.body.parts.map(({ name }: { name: string }) => name)).toEqual([
+      'mqtt',
+      'store',
+      'unit vellmoor',
+    ]);
+    expect(health.body.ok).toBe(true);
+    const { rows } = (await get('/api/units/vellmoor/history?points=5000')).body;
+    expect(rows).toHaveLength(SCANS);
+    expect(Math.abs(Date.parse(rows[0].time) - first_ms)).toBeLessThan(30_000);
+  });
+
+  it('says good-bye, and its last will says it where it could not', async () => {
+    const { heard, end } = await listen(broker.url);
+    const status = () => heard.get('rockhour/heartbeat')?.content.status;
+    await waitFor('online', () => status() === 'online');
+    expect(await daemon.end('SIGTERM')).toBe(0);
+    await waitFor('the farewell', () => status() === 'offline');
+    await startDaemon();
+    await waitFor('online again', () => status() === 'online');
+    await daemon.end('SIGKILL');
+    await waitFor('the last will', () => status() === 'offline');
+    await end();
+    // Whoever comes now sees at once that it is gone, and the last state with its time.
+    const later = await listen(broker.url);
+    await waitFor('the state', () => later.heard.has('rockhour/vellmoor/state'));
+    await waitFor(
+      'offline',
+      () => later.heard.get('rockhour/heartbeat')?.content.status === 'offline',
+    );
+    await later.end();
+  }, 60_000);
+});
