@@ -407,6 +407,11 @@ function restart(
       resetWall(model.tables, state.wall, state.tubes[k] as TubeState);
     }
   });
+  for (const memory of state.sensors.flat()) {
+    // What moved was the estimate that is given up, not the rock.
+    memory.moved_K = 0;
+    memory.expected_K = Number.NaN;
+  }
   state.missed = 0;
   state.settled = 0;
   state.used = readings.length;
