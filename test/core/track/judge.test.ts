@@ -1,0 +1,272 @@
+import { describe, expect, it } from 'vitest';
+import {
+  freshSensor,
+  type Judgement,
+  judgeSensor,
+  rejectWithGroup,
+  type SensorEvidence,
+  type SensorMemory,
+} from '../../../src/core/track/judge.js';
+
+const SCAN_S = 60;
+const SIGMA = 1;
+
+/** One thermocouple whose estimate stands at `predicted`; `scan` judges one reading a minute. */
+function watched(defaults: Partial<SensorEvidence> = {}) {
+  const memory: SensorMemory = freshSensor();
+  let n = 0;
+  let noise = 0;
+  const scan = (value_K: number, over: Partial<SensorEvidence> = {}): Judgement => {
+    n++;
+    const evidence: SensorEvidence = {
+      time_ms: n * SCAN_S * 1000,
+      value_K,
+      othersPresent: true,
+      predicted_K: 500,
+      sigma_K: SIGMA,
+      deadband_K: 0,
+      range_K: [200, 900],
+      supported: false,
+      ...defaults,
+      ...over,
+    };
+    const judgement = judgeSensor(memory, evidence);
+    // As the tracker does after a scan; here the estimate is not corrected by the readings.
+    memory.expected_K = evidence.predicted_K;
+    return judgement;
+  };
+  /** A sound reading is never twice the same. */
+  const sound = (over: Partial<SensorEvidence> = {}): Judgement => {
+    noise = 0.2 - noise;
+    return scan((over.predicted_K ?? 500) + noise, over);
+  };
+  return { memory, scan, sound, now_ms: () => n * SCAN_S * 1000 };
+}
+
+describe('a sound sensor', () => {
+  it('is used and has no verdict', () => {
+    const { memory, sound } = watched();
+    for (let k = 0; k < 50; k++) expect(sound()).toBe('use');
+    expect(memory.verdict).toBeNull();
+  });
+
+  it('is left out, not rejected, for up to four scans in a row outside the gate', () => {
+    const { memory, scan, sound } = watched();
+    for (let round = 0; round < 5; round++) {
+      for (let k = 0; k < 4; k++) expect(scan(510 + 0.1 * k)).toBe('leave_out');
+      expect(sound()).toBe('use');
+    }
+    expect(memory.verdict).toBeNull();
+  });
+
+  it('is softened, never rejected, where sensors beside it bear it out', () => {
+    const { memory, scan } = watched({ supported: true });
+    for (let k = 0; k < 30; k++) expect(scan(520 + (k % 2))).toBe('soften');
+    expect(memory.verdict).toBeNull();
+  });
+});
+
+describe('open', () => {
+  it('is a reading that is missing while others of the store deliver', () => {
+    const { memory, scan, sound, now_ms } = watched();
+    sound();
+    expect(scan(Number.NaN)).toBe('leave_out');
+    expect(memory.verdict).toBe('open');
+    expect(memory.since_ms).toBe(now_ms());
+    expect(memory.evidence).not.toBe('');
+  });
+
+  it('ends with the next reading, which is used', () => {
+    const { memory, scan, sound } = watched();
+    for (let k = 0; k < 5; k++) scan(Number.NaN);
+    expect(sound()).toBe('use');
+    expect(memory.verdict).toBeNull();
+  });
+
+  it('is no verdict where the whole store is silent', () => {
+    const { memory, scan } = watched({ othersPresent: false });
+    for (let k = 0; k < 5; k++) expect(scan(Number.NaN)).toBe('leave_out');
+    expect(memory.verdict).toBeNull();
+  });
+
+  it('takes an infinite reading for a missing one', () => {
+    const { memory, scan } = watched();
+    scan(Number.POSITIVE_INFINITY);
+    expect(memory.verdict).toBe('open');
+  });
+
+  it('does not hide an earlier verdict', () => {
+    const { memory, scan } = watched();
+    scan(1000);
+    scan(Number.NaN);
+    expect(memory.verdict).toBe('burst');
+  });
+});
+
+describe('burst', () => {
+  it.each([
+    [950, 'up'],
+    [150, 'down'],
+    [1e300, 'far up'],
+    [-9725.85, 'to a code'],
+  ])('is a reading beyond what the plant can produce: %d K (%s)', (value) => {
+    const { memory, scan, sound } = watched();
+    sound();
+    expect(scan(value)).toBe('leave_out');
+    expect(memory.verdict).toBe('burst');
+  });
+
+  it('is believed again after twenty sound scans in a row, and not before', () => {
+    const { memory, scan, sound } = watched();
+    scan(950);
+    for (let k = 0; k < 19; k++) expect(sound()).toBe('leave_out');
+    scan(950);
+    for (let k = 0; k < 19; k++) expect(sound()).toBe('leave_out');
+    expect(memory.verdict).toBe('burst');
+    sound();
+    expect(memory.verdict).toBeNull();
+    expect(sound()).toBe('use');
+  });
+});
+
+describe('offset and drifting', () => {
+  it('is an offset after five scans in a row outside the gate at about the same distance', () => {
+    const { memory, scan } = watched();
+    for (let k = 0; k < 4; k++) {
+      scan(508 + 0.1 * (k % 2));
+      expect(memory.verdict).toBeNull();
+    }
+    scan(508);
+    expect(memory.verdict).toBe('offset');
+  });
+
+  it('is drifting where the distance has grown by a third or more since the first of them', () => {
+    const { memory, scan } = watched();
+    for (let k = 0; k < 5; k++) scan(505 + 0.5 * k);
+    expect(memory.verdict).toBe('drifting');
+  });
+
+  it('counts to either side', () => {
+    const { memory, scan } = watched();
+    for (let k = 0; k < 5; k++) scan(492 - 0.01 * (k % 2));
+    expect(memory.verdict).toBe('offset');
+  });
+
+  it('is believed again after twenty scans in a row within three sigma', () => {
+    const { memory, scan, sound } = watched();
+    for (let k = 0; k < 5; k++) scan(508 + 0.1 * (k % 2));
+    for (let k = 0; k < 19; k++) sound();
+    // Within the gate, yet not within three sigma: the row is broken.
+    scan(504);
+    for (let k = 0; k < 19; k++) expect(sound()).toBe('leave_out');
+    expect(memory.verdict).toBe('offset');
+    sound();
+    expect(memory.verdict).toBeNull();
+  });
+});
+
+describe('stuck', () => {
+  /** The rock beside the sensor moves by `rate` K per scan while its reading stays. */
+  function frozen(rate: number, scans: number, over: Partial<SensorEvidence> = {}) {
+    const sensor = watched(over);
+    sensor.sound();
+    const judgements: Judgement[] = [];
+    for (let k = 1; k <= scans; k++) {
+      judgements.push(sensor.scan(500, { predicted_K: 500 + rate * k }));
+    }
+    return { ...sensor, judgements };
+  }
+
+  it('is a reading unchanged for ten minutes while the rock there moved far', () => {
+    const { memory } = frozen(0.6, 12);
+    // 12 min and 7.2 K: more than 4 K and six sigma.
+    expect(memory.verdict).toBe('stuck');
+  });
+
+  it('is not a matter of minutes: a fast front does not make it stuck before ten', () => {
+    expect(frozen(4, 9).memory.verdict).not.toBe('stuck');
+  });
+
+  it('is left out before the verdict, once the rock should have moved visibly', () => {
+    const { judgements, memory } = frozen(0.25, 10);
+    expect(judgements[0]).toBe('use');
+    expect(judgements.at(-1)).toBe('leave_out');
+    expect(memory.verdict).toBeNull();
+  });
+
+  it('is not a value that is rightly steady, however long', () => {
+    const { memory, judgements } = frozen(0, 5000);
+    expect(memory.verdict).toBeNull();
+    expect(judgements.every((j) => j === 'use')).toBe(true);
+  });
+
+  it('is not a value that stays within its reporting deadband', () => {
+    const { memory, scan } = watched({ deadband_K: 3 });
+    // The rock moves by 5 K in 20 min, less than twice the deadband.
+    for (let k = 0; k < 20; k++) scan(500, { predicted_K: 500 + 0.25 * k });
+    expect(memory.verdict).toBeNull();
+  });
+
+  it('is not a value that follows the rock by steps of the deadband', () => {
+    const { memory, scan } = watched({ deadband_K: 2 });
+    for (let k = 0; k < 200; k++) {
+      const rock = 500 + 0.3 * k;
+      expect(scan(500 + 2.5 * Math.floor((rock - 500) / 2.5), { predicted_K: rock })).toBe('use');
+    }
+    expect(memory.verdict).toBeNull();
+  });
+
+  it('is not returned while the rock passes the frozen value', () => {
+    const { memory, scan } = frozen(0.6, 12);
+    for (let k = 0; k < 100; k++) scan(500, { predicted_K: 507.2 - 0.144 * k });
+    expect(memory.verdict).toBe('stuck');
+    for (let k = 0; k < 100; k++) scan(500, { predicted_K: 500 });
+    expect(memory.verdict).toBe('stuck');
+  });
+
+  it('is believed again once it has moved five times and been sound for twenty scans', () => {
+    const { memory, sound } = frozen(0.6, 12);
+    let scans = 0;
+    while (memory.verdict !== null && scans < 100) {
+      sound();
+      scans++;
+    }
+    expect(scans).toBe(20);
+  });
+});
+
+describe('group_fault', () => {
+  it('is set from outside, and leaves a verdict of the sensor`s own alone', () => {
+    const { memory, scan } = watched();
+    rejectWithGroup(memory, 1000, 'the whole card moved');
+    expect(memory).toMatchObject({ verdict: 'group_fault', since_ms: 1000 });
+    const other = watched();
+    other.scan(950);
+    rejectWithGroup(other.memory, 1000, 'the whole card moved');
+    expect(other.memory.verdict).toBe('burst');
+    expect(scan(530)).toBe('leave_out');
+  });
+
+  it('is believed again after twenty scans in a row within three sigma', () => {
+    const { memory, sound } = watched();
+    rejectWithGroup(memory, 0, 'the whole card moved');
+    for (let k = 0; k < 19; k++) expect(sound()).toBe('leave_out');
+    sound();
+    expect(memory.verdict).toBeNull();
+  });
+});
+
+describe('what is remembered of a sensor', () => {
+  it('stays plain and of the same size, however long it is judged', () => {
+    const { memory, scan, sound } = watched();
+    const keys = Object.keys(memory).sort();
+    for (let k = 0; k < 300; k++) {
+      if (k % 7 === 0) scan(k % 2 ? Number.NaN : 950);
+      else sound();
+    }
+    expect(Object.keys(memory).sort()).toEqual(keys);
+    for (const value of Object.values(memory)) {
+      if (value !== null) expect(['number', 'string']).toContain(typeof value);
+    }
+  });
+});
