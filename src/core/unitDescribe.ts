@@ -80,7 +80,7 @@ function qualityOf(model: UnitModel, state: UnitState, taken: Taken): Quality {
   const used = state.stores.reduce((sum, store) => sum + store.used, 0);
   if (used === 0 && !taken.conditions.flowKnown) return 'blind';
   const settled = state.stores.every((store) => store.settled >= 10);
-  if (taken.implausible > 0) return 'degraded';
+  if (taken.implausible > 0 || taken.conditions.flowStandIn) return 'degraded';
   if (!taken.conditions.flowKnown || used < 0.6 * model.thermocouples.length || !settled) {
     return 'degraded';
   }

@@ -38,8 +38,8 @@ export function learnMachine(
     state.factors.charge.steady_s = 0;
     state.factors.discharge.steady_s = 0;
   }
-  if (conditions.mode === 'stand' || !conditions.flowKnown || !Number.isFinite(conditions.power_W))
-    return;
+  if (conditions.mode === 'stand' || !conditions.flowKnown || conditions.flowStandIn) return;
+  if (!Number.isFinite(conditions.power_W)) return;
   const flow = Math.abs(conditions.flow_kg_s);
   if (flow < model.unit.estimator.stand_flow_kg_s || dt_s <= 0) return;
   const direction = conditions.mode;

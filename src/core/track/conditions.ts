@@ -76,6 +76,8 @@ export interface Conditions {
   /** Signed metered flow used for this scan, + = charge [kg/s]. */
   readonly flow_kg_s: number;
   readonly flowKnown: boolean;
+  /** The flow follows from power because the meter is silent or refuted. */
+  readonly flowStandIn: boolean;
   /** Net power, + = drawn to charge, as the configuration counts it [W]; NaN unknown. */
   readonly power_W: number;
   readonly ambient_K: number;
@@ -89,8 +91,9 @@ const FADE_S = 3600;
 /**
  * Mode and flow of a scan. A mode channel (or the valves) wins, else the sign of the flow, else the
  * sign of the power; a flow below `stand_flow_kg_s` for two scans is standing. Contradictions are
- * counted. A missing flow is held for two scans; then it is unknown: its expectation fades and
- * `unknown_s` grows. Without any flow channel the flow follows from power and machine.
+ * counted. A missing or refuted flow is held for two scans; then it follows from power and machine,
+ * as it always does without a flow channel; where that is silent too it is unknown: what is expected
+ * is the last one in the direction told, else fading, and `unknown_s` grows.
  *
  * @param outlets store outlets for a flow by power; see Machine
  */
@@ -108,28 +111,41 @@ export function readConditions(
   const ambientRead = at(map.ambient);
   const ambient_K = Number.isFinite(ambientRead) ? ambientRead : unit.ambient_K;
   const told = toldDirection(map, at);
-  const measured = measuredFlow(unit, map, machine, at, told, power_W, outlets, ambient_K);
+  const hasMeter = [map.flowSigned, map.flowUnsigned, map.flowOf.charge, map.flowOf.discharge].some(
+    (index) => index >= 0,
+  );
+  const byPower = flowByPower(unit, machine, told, power_W, outlets, ambient_K);
+  const metered = hasMeter ? meteredFlow(unit, map, at, told, power_W) : byPower;
+  const refuted = hasMeter && isRefuted(unit, machine, metered, byPower, told, power_W);
 
   let flow: number;
-  if (Number.isFinite(measured)) {
-    flow = measured;
-    state.lastFlow_kg_s = flow;
+  let standIn = false;
+  if (Number.isFinite(metered) && !refuted) {
+    flow = metered;
     state.flowMissing = 0;
-    state.unknown_s = 0;
   } else {
     state.flowMissing++;
-    if (state.flowMissing > HELD_SCANS) {
-      state.unknown_s += dt_s;
-      flow = told === 0 ? 0 : state.lastFlow_kg_s * Math.exp(-state.unknown_s / FADE_S);
-      if (told === 0) state.unknown_s = 0;
-    } else flow = state.lastFlow_kg_s;
+    standIn = state.flowMissing > HELD_SCANS && Number.isFinite(byPower);
+    flow = standIn ? byPower : state.lastFlow_kg_s;
+  }
+  const unknown = state.flowMissing > HELD_SCANS && !standIn && told !== 0;
+  if (unknown) {
+    state.unknown_s += dt_s;
+    flow =
+      told === null
+        ? state.lastFlow_kg_s * Math.exp(-state.unknown_s / FADE_S)
+        : told * Math.abs(state.lastFlow_kg_s);
+  } else {
+    if (state.flowMissing > HELD_SCANS && !standIn) flow = 0;
+    else state.lastFlow_kg_s = flow;
+    state.unknown_s = 0;
   }
   const standing = Math.abs(flow) < unit.estimator.stand_flow_kg_s;
   state.belowStand = standing ? Math.min(STAND_SCANS, state.belowStand + 1) : 0;
-  if (told !== null && told !== 0 && !standing && Math.sign(flow) !== told) state.disagreements++;
+  const against = told !== null && told !== 0 && !standing && Math.sign(flow) !== told;
   // A meter without a sense has its flow signed by what is told, so only its size can contradict.
   const unsigned = at(map.flowUnsigned) >= unit.estimator.stand_flow_kg_s;
-  if (told === 0 && (!standing || unsigned)) state.disagreements++;
+  if (refuted || against || (told === 0 && (!standing || unsigned))) state.disagreements++;
 
   if (told !== null && told !== 0) state.mode = told > 0 ? 'charge' : 'discharge';
   else if (told === 0) state.mode = 'stand';
@@ -139,10 +155,42 @@ export function readConditions(
   return {
     mode: state.mode,
     flow_kg_s: state.belowStand >= STAND_SCANS ? 0 : flow,
-    flowKnown: state.flowMissing <= HELD_SCANS || told === 0,
+    flowKnown: !unknown,
+    flowStandIn: standIn,
     power_W,
     ambient_K,
   };
+}
+
+/** So many times the standing flow is a flow without doubt. */
+const RUNNING_FLOWS = 4;
+/** A flow by power beyond so many times the greatest is no flow of this plant. */
+const FLOW_MOST = 3;
+
+/**
+ * A dead meter (a broken wire reads as no flow) or a frozen one, where mode and power agree against
+ * it: running is told, and the power needs a flow, but none is metered that way; or a stand is told
+ * and less power seen than the auxiliaries of a running machine, but a flow is metered. As metered it
+ * would hold the front, or move it, against all that the thermocouples say. Where no mode is told,
+ * power alone refutes a meter that shows no flow, never one that shows the other direction.
+ */
+function isRefuted(
+  unit: UnitDefinition,
+  machine: Machine,
+  metered: number,
+  byPower: number,
+  told: number | null,
+  power_W: number,
+): boolean {
+  if (!Number.isFinite(metered) || !Number.isFinite(power_W)) return false;
+  const stand = unit.estimator.stand_flow_kg_s;
+  const running = RUNNING_FLOWS * stand;
+  if (told === 0) {
+    return Math.abs(metered) > running && Math.abs(power_W) < machine.auxiliary_running_W;
+  }
+  const sign = Math.sign(power_W);
+  if (!(sign * byPower > running)) return false;
+  return told === null ? Math.abs(metered) < stand : told === sign && metered * sign < stand;
 }
 
 /** +1, 0, -1 as told by the mode channel or the valves; null where neither tells. */
@@ -158,41 +206,51 @@ function toldDirection(map: ChannelMap, at: (index: number) => number): number |
   return open(charge) && open(discharge) ? null : 0;
 }
 
-function measuredFlow(
+/** Signed flow by the meters [kg/s]; NaN where they do not tell. */
+function meteredFlow(
   unit: UnitDefinition,
   map: ChannelMap,
-  machine: Machine,
   at: (index: number) => number,
+  told: number | null,
+  power_W: number,
+): number {
+  if (map.flowSigned >= 0) return at(map.flowSigned);
+  const stand = unit.estimator.stand_flow_kg_s;
+  if (map.flowUnsigned >= 0) {
+    const flow = at(map.flowUnsigned);
+    if (flow < stand) return 0;
+    const direction = told ?? (Number.isFinite(power_W) ? Math.sign(power_W) : null);
+    return direction === null ? Number.NaN : direction * flow;
+  }
+  const charge = at(map.flowOf.charge);
+  const discharge = at(map.flowOf.discharge);
+  if (!Number.isFinite(charge) && !Number.isFinite(discharge)) return Number.NaN;
+  const flow =
+    (Number.isFinite(charge) ? charge : 0) - (Number.isFinite(discharge) ? discharge : 0);
+  // An idle meter says nothing of what its silent fellow would read, unless all is told to stand.
+  const silent = (way: Direction): boolean =>
+    map.flowOf[way] >= 0 && !Number.isFinite(at(map.flowOf[way]));
+  const blind = (silent('charge') && told !== -1) || (silent('discharge') && told !== 1);
+  return blind && told !== 0 && Math.abs(flow) < stand ? Number.NaN : flow;
+}
+
+/** Signed flow at which the machine takes or gives the power [kg/s]; NaN where that is not known. */
+function flowByPower(
+  unit: UnitDefinition,
+  machine: Machine,
   told: number | null,
   power_W: number,
   outlets: Readonly<Record<Direction, StoreTemperatures>>,
   ambient_K: number,
 ): number {
-  if (map.flowSigned >= 0) return at(map.flowSigned);
-  if (map.flowOf.charge >= 0 || map.flowOf.discharge >= 0) {
-    const charge = at(map.flowOf.charge);
-    const discharge = at(map.flowOf.discharge);
-    if (!Number.isFinite(charge) && !Number.isFinite(discharge)) return Number.NaN;
-    const flow =
-      (Number.isFinite(charge) ? charge : 0) - (Number.isFinite(discharge) ? discharge : 0);
-    // An idle meter says nothing of what its silent fellow would read, unless all is told to stand.
-    const silent = (way: Direction): boolean =>
-      map.flowOf[way] >= 0 && !Number.isFinite(at(map.flowOf[way]));
-    const blind = (silent('charge') && told !== -1) || (silent('discharge') && told !== 1);
-    if (blind && told !== 0 && Math.abs(flow) < unit.estimator.stand_flow_kg_s) return Number.NaN;
-    return flow;
-  }
-  const byPower = Number.isFinite(power_W) ? Math.sign(power_W) : null;
-  const direction = told ?? byPower;
-  if (map.flowUnsigned >= 0) {
-    const flow = at(map.flowUnsigned);
-    if (flow < unit.estimator.stand_flow_kg_s) return 0;
-    return direction === null ? Number.NaN : direction * flow;
-  }
-  if (!Number.isFinite(power_W)) return told === 0 ? 0 : Number.NaN;
+  if (told === 0) return 0;
+  if (!Number.isFinite(power_W)) return Number.NaN;
+  const direction = told ?? Math.sign(power_W);
   if (direction === 0) return 0;
-  const way: Direction = (direction as number) > 0 ? 'charge' : 'discharge';
+  const way: Direction = direction > 0 ? 'charge' : 'discharge';
   const answer = machine.flowForPower(way, Math.abs(power_W), outlets[way], ambient_K);
-  if ('reason' in answer) return 0;
-  return way === 'charge' ? answer.flow_kg_s : -answer.flow_kg_s;
+  if ('reason' in answer) return answer.reason === 'no_work' ? Number.NaN : 0;
+  const most =
+    FLOW_MOST * Math.max(unit.limits.charge.flow_max_kg_s, unit.limits.discharge.flow_max_kg_s);
+  return answer.flow_kg_s > most ? Number.NaN : direction * answer.flow_kg_s;
 }
