@@ -8,7 +8,7 @@ import type {
 
 /** Points along a bed between which heat is summed; the lines themselves stay exact. */
 const POINTS = 300;
-/** Least discharge from which a heat rate is taken [J of electricity per W of rating]. */
+/** Least discharge from which a heat rate is taken, as time at rated power [s]. */
 const LEARN_S = 1800;
 /** Above this share of the greatest flow the unit runs. */
 const RUNNING_SHARE = 0.02;
@@ -35,7 +35,7 @@ interface Store {
  * What a plant man reckons without a model of the bed: straight lines between the thermocouples of a
  * string, on to the gas at both ends while it flows; heat by the table of the rock; hours as heat over
  * heat rate. The rate at a power is what the last discharge took of heat per unit of electricity, and
- * before the first what the cycle would take between the reference temperatures.
+ * before the first that of the plant's rating: a full store lasts the rated hours at rated power.
  */
 export class StraightLines {
   private readonly stores: Store[];
@@ -123,7 +123,7 @@ export class StraightLines {
     );
   }
 
-  /** Heat per electricity when a full store lasts for the rated hours at rated power. */
+  /** Heat per electricity by the rating. */
   private nominal(store: Store): number {
     return store.full_J / (this.unit.rated_power_W * this.unit.rated_hours * 3600);
   }

@@ -1,17 +1,7 @@
-import type { RowPlan, Scenario } from './scenarios.js';
+import { type Figure, figure, rms } from './figure.js';
+import type { RowPlan, Scenario } from './scenario.js';
 import { bestShiftedPinball, binomialInterval, pinball } from './statistics.js';
 import { type HoursSample, mergeSum, type RowResult, rmsOf, type Sum, sumOf } from './tally.js';
-
-/** One figure of the table. */
-export interface Figure {
-  readonly name: string;
-  readonly value: number | null;
-  readonly unit: string;
-  /** What the goal is, in words; null where there is none. */
-  readonly target: string | null;
-  readonly met: boolean | null;
-  readonly note: string;
-}
 
 const RATIO = [0.8, 1.25] as const;
 
@@ -26,24 +16,6 @@ export function pooled(results: readonly RowResult[]): Record<string, Sum> {
   return sums;
 }
 
-export function figure(
-  name: string,
-  value: number | null,
-  unit: string,
-  target: { most?: number; least?: number } | null = null,
-  note = '',
-): Figure {
-  if (target === null) return { name, value, unit, target: null, met: null, note };
-  const { most, least } = target;
-  const words =
-    least === undefined ? `<= ${most}` : most === undefined ? `>= ${least}` : `${least}..${most}`;
-  const met =
-    value === null
-      ? false
-      : value <= (most ?? Number.POSITIVE_INFINITY) && value >= (least ?? Number.NEGATIVE_INFINITY);
-  return { name, value, unit, target: words, met, note };
-}
-
 /** Figures that every row has. */
 export function commonFigures(
   scenario: Scenario,
@@ -52,7 +24,8 @@ export function commonFigures(
   rated: { readonly hours: number },
 ): Figure[] {
   const sums = pooled(results);
-  const goals = row.set === 'three' ? null : GOALS[row.set];
+  const goals = goalsOf(scenario, row);
+  const only = typeof scenario.goals === 'object' ? { most: scenario.goals.soc_rms } : null;
   const at = (name: string) => sums[name]?.at ?? '';
   const worst = (name: string) => (sums[name] ? Math.abs(sums[name].worst) : null);
   const out: Figure[] = [];
@@ -63,7 +36,9 @@ export function commonFigures(
       out.push(figure(`state of charge, ${store}, rms`, rmsOf(sums[`soc ${store}`]), '%', goal));
     }
   } else {
-    out.push(figure('state of charge, rms', rmsOf(sums.soc), '%', goals && { most: goals.soc[0] }));
+    out.push(
+      figure('state of charge, rms', rmsOf(sums.soc), '%', goals ? { most: goals.soc[0] } : only),
+    );
   }
   out.push(
     figure(
@@ -131,6 +106,10 @@ const GOALS = {
   },
 } as const;
 
+function goalsOf(scenario: Scenario, row: RowPlan) {
+  return scenario.goals !== 'sensors' || row.set === 'three' ? null : GOALS[row.set];
+}
+
 function share(groups: readonly { hits: number; cases: number }[]): number | null {
   const cases = groups.reduce((sum, g) => sum + g.cases, 0);
   return cases === 0 ? null : (100 * groups.reduce((sum, g) => sum + g.hits, 0)) / cases;
@@ -143,33 +122,35 @@ function hoursFigures(
   sums: Record<string, Sum>,
   ratedHours: number,
 ): Figure[] {
-  const goals = row.set === 'three' ? null : GOALS[row.set];
+  const goals = goalsOf(scenario, row);
   const counted = (r: RowResult) => r.hours.filter((h) => h.truth > 0);
   const all = results.flatMap(counted);
   const late = all.filter((h) => h.at_h >= scenario.cycle_h);
   const known = scenario.truth.machine === 'known';
-  const rms = (samples: readonly HoursSample[], of: (h: HoursSample) => number) =>
-    samples.length === 0
-      ? null
-      : Math.sqrt(samples.reduce((sum, h) => sum + (of(h) - h.truth) ** 2, 0) / samples.length);
-  const lateRms = rms(late, (h) => h.p50);
+  const off = (samples: readonly HoursSample[], of: (h: HoursSample) => number) =>
+    rms(samples.map((h) => of(h) - h.truth));
+  const lateRms = off(late, (h) => h.p50);
   const out: Figure[] = [
     figure(
       'hours at 60 % power, rms',
-      rms(all, (h) => h.p50),
+      off(all, (h) => h.p50),
       'h',
       goals && known ? { most: goals.hours_h } : null,
       sums.hours ? `worst ${sums.hours.worst.toFixed(3)} h, ${sums.hours.at}` : '',
     ),
-    figure(
-      '  after one cycle, rms',
-      lateRms === null ? null : (100 * lateRms) / ratedHours,
-      '% of rated',
-      goals && !known ? { most: goals.hours_rated } : null,
-    ),
+    ...(late.length === 0
+      ? []
+      : [
+          figure(
+            '  after one cycle, rms',
+            lateRms === null ? null : (100 * lateRms) / ratedHours,
+            '% of rated',
+            goals && !known ? { most: goals.hours_rated } : null,
+          ),
+        ]),
     figure(
       '  heat over heat rate, rms',
-      rms(all, (h) => h.line),
+      off(all, (h) => h.line),
       'h',
     ),
     figure(

@@ -1,5 +1,5 @@
 import { createHash } from 'node:crypto';
-import { readdirSync, readFileSync, statSync } from 'node:fs';
+import { mkdirSync, readdirSync, readFileSync, rmSync, statSync, utimesSync } from 'node:fs';
 import { join } from 'node:path';
 import { fileURLToPath } from 'node:url';
 
@@ -23,17 +23,38 @@ function hashOf(paths: readonly string[]): string {
   return hash.digest('hex').slice(0, 12);
 }
 
-/** What a truth depends on: the finer plant, the sensor sets and the schedules. */
-export const truthHash = (): string =>
-  hashOf([
-    'test/plant',
-    'tools/score/sensorSets.ts',
-    'tools/score/truthPlant.ts',
-    'tools/score/truthColumns.ts',
-    'tools/score/recording.ts',
-    'tools/score/truthOf.ts',
-  ]);
+const own = (...names: string[]) => names.map((name) => `tools/score/${name}.ts`);
+const TRUTH = [
+  'test/plant',
+  ...own('sensorSets', 'truthPlant', 'truthColumns', 'recording', 'truthOf'),
+];
+
+/** What a truth depends on, its plan aside: the finer plant and what reads it. */
+export const truthHash = (): string => hashOf(TRUTH);
 
 /** What a result depends on: the truth, the estimator, its configuration and the scoring. */
 export const resultHash = (): string =>
-  hashOf(['test/plant', 'test/score', 'tools/score', 'src/core', 'src/config', 'config/demo.yaml']);
+  hashOf([
+    ...TRUTH,
+    ...own('scenarios', 'series', 'tally', 'job'),
+    'tools/score/own',
+    'test/score/straightLines.ts',
+    'src/core',
+    'src/config',
+    'config/demo.yaml',
+  ]);
+
+/** Makes the folder of a kind and keeps the last few others of that kind that were used. */
+export function keepFolders(kind: 'truth' | 'results', mine: string, others: number): void {
+  const path = join(folder, kind);
+  mkdirSync(join(path, mine), { recursive: true });
+  const now = new Date();
+  utimesSync(join(path, mine), now, now);
+  const rest = readdirSync(path, { withFileTypes: true })
+    .filter((entry) => entry.isDirectory() && entry.name !== mine)
+    .map((entry) => ({ name: entry.name, used: statSync(join(path, entry.name)).mtimeMs }))
+    .sort((a, b) => b.used - a.used);
+  for (const { name } of rest.slice(others)) {
+    rmSync(join(path, name), { recursive: true, force: true });
+  }
+}

@@ -2,44 +2,46 @@ import { existsSync, mkdirSync, readFileSync, renameSync, writeFileSync } from '
 import { join } from 'node:path';
 import { folder } from './folder.js';
 import { SCENARIOS } from './scenarios.js';
-import { unitWith } from './sensorSets.js';
-import { runSeries } from './series.js';
-import { type RowResult, tally } from './tally.js';
+import type { RowResult } from './tally.js';
 import { truthOf } from './truthOf.js';
 
-/** One scenario with one seed: the unit of work, and of what survives an interruption. */
+/** One scenario with one seed and the rows wanted of it: the unit of work. */
 export interface Job {
   readonly scenario: string;
   readonly seed: number;
+  readonly rows: readonly string[];
 }
-
-export type JobResult = Readonly<Record<string, RowResult>>;
 
 export interface Hashes {
   readonly truth: string;
   readonly result: string;
 }
 
-const fileOf = ({ scenario, seed }: Job, hash: string) =>
-  join(folder, 'results', hash, `${scenario}-${seed}.json`);
+const fileOf = (scenario: string, row: string, seed: number, hash: string) =>
+  join(folder, 'results', hash, `${scenario}.${row}.${seed}.json`);
 
-export function resultOf(job: Job, hash: string): JobResult | null {
-  const file = fileOf(job, hash);
-  return existsSync(file) ? (JSON.parse(readFileSync(file, 'utf8')) as JobResult) : null;
+/** The result of a row with a seed; null where it has not been run with this code. */
+export function resultOf(
+  scenario: string,
+  row: string,
+  seed: number,
+  hash: string,
+): RowResult | null {
+  const file = fileOf(scenario, row, seed, hash);
+  return existsSync(file) ? (JSON.parse(readFileSync(file, 'utf8')) as RowResult) : null;
 }
 
+/** Runs a job and keeps its results, one file each: what is there survives an interruption. */
 export function runJob(job: Job, hashes: Hashes): void {
   const scenario = SCENARIOS.find((s) => s.id === job.scenario);
   if (!scenario) throw new RangeError(`no scenario ${job.scenario}`);
   const recording = truthOf(scenario.truth, job.seed, hashes.truth);
-  const result: Record<string, RowResult> = {};
-  for (const row of scenario.rows) {
-    const unit = unitWith(row.set, row.errors);
-    const series = runSeries(unit, recording, { errors: row.errors, hours: scenario.hours });
-    result[row.id] = tally(series, job.seed);
-  }
-  const file = fileOf(job, hashes.result);
+  const rows = scenario.rows.filter((row) => job.rows.includes(row.id));
+  const results = scenario.run(recording, job.seed, rows);
   mkdirSync(join(folder, 'results', hashes.result), { recursive: true });
-  writeFileSync(`${file}.part`, JSON.stringify(result));
-  renameSync(`${file}.part`, file);
+  for (const [row, result] of Object.entries(results)) {
+    const file = fileOf(scenario.id, row, job.seed, hashes.result);
+    writeFileSync(`${file}.part`, JSON.stringify(result));
+    renameSync(`${file}.part`, file);
+  }
 }

@@ -1,41 +1,22 @@
-import type { PlantChange } from '../../test/plant/faults.js';
 import type { PlantGeometry } from '../../test/plant/geometry.js';
 import { scheduleFor } from '../../test/plant/schedules.js';
 import type { Segment } from '../../test/plant/truth.js';
+import { channel, channellingFigures, channellingOwn } from './own/channelling.js';
+import { FAULT_ROWS, faultFigures, runFaults } from './own/faults.js';
+import { gapFigures, runGap } from './own/gap.js';
+import { heatTransferFigures, heatTransferOwn, poorTransfer } from './own/heatTransfer.js';
+import { meterStepFigures, runMeterStep } from './own/meterStep.js';
+import { plain } from './own/plain.js';
+import type { RowPlan, Scenario, TruthPlan } from './scenario.js';
 import type { ErrorModel, SensorSet } from './sensorSets.js';
 
 const H = 3600;
 
-/** One run of the plant per seed, whose recording any number of scenarios share. */
-export interface TruthPlan {
-  readonly id: string;
-  readonly machine: 'known' | 'random';
-  readonly segments: (geometry: PlantGeometry) => readonly Segment[];
-  readonly changes?: (seed: number) => readonly PlantChange[];
-  /** True hours are kept this often [min]. */
-  readonly hours_every_min: number | null;
-}
-
-/** One line of the table: what reads the recording of a scenario. */
-export interface RowPlan {
-  readonly id: string;
-  readonly set: SensorSet;
-  readonly errors: ErrorModel;
-}
-
-export interface Scenario {
-  readonly id: string;
-  readonly words: string;
-  readonly truth: TruthPlan;
-  /** Only every so many seeds run it; 1 = all. */
-  readonly every: number;
-  readonly rows: readonly RowPlan[];
-  readonly hours: boolean;
-  /** When the first full cycle is over [h]; a drawn machine is scored on hours from then on. */
-  readonly cycle_h: number;
-  /** Nothing is wrong with any sensor. */
-  readonly healthy: boolean;
-}
+const row = (set: SensorSet, errors: ErrorModel): RowPlan => ({
+  id: `${set}-${errors}`,
+  set,
+  errors,
+});
 
 const day = (machine: 'known' | 'random'): TruthPlan => ({
   id: `day-${machine}`,
@@ -44,31 +25,154 @@ const day = (machine: 'known' | 'random'): TruthPlan => ({
   hours_every_min: 60,
 });
 
-const row = (set: SensorSet, errors: ErrorModel): RowPlan => ({
-  id: `${set}-${errors}`,
-  set,
-  errors,
-});
+/** A charge, a short rest, most of a discharge and another charge: enough for one cycle. */
+const cycle = ({ rated_power_W: P }: PlantGeometry): Segment[] => [
+  { mode: 'charge', power_W: 1.5 * P, duration_s: 5 * H },
+  { mode: 'stand', duration_s: 0.5 * H },
+  { mode: 'discharge', power_W: P, duration_s: 4 * H },
+  { mode: 'charge', power_W: 1.4 * P, duration_s: 4 * H },
+];
+
+/**
+ * Four hours of charge, of which the last is unseen, and an unseen discharge; the gap ends while the
+ * unit stands with even seeds and while it still discharges with odd ones.
+ */
+const gap = ({ rated_power_W: P }: PlantGeometry, seed: number): Segment[] => {
+  const discharge_h = seed % 2 === 0 ? 2 : 3;
+  return [
+    { mode: 'charge', power_W: 1.5 * P, duration_s: 4 * H },
+    { mode: 'discharge', power_W: P, duration_s: discharge_h * H },
+    { mode: 'stand', duration_s: (3 - discharge_h + 0.5) * H },
+    { mode: 'charge', power_W: 1.3 * P, duration_s: 2.5 * H },
+  ];
+};
+
+const NOTHING_OWN = () => [];
+const base = {
+  every: 1,
+  figures: NOTHING_OWN,
+  hours: true,
+  cycle_h: 12.5,
+  healthy: true,
+  goals: 'sensors',
+  run: plain(true),
+} as const;
+
+const CHANNELS = [5, 10, 22] as const;
+const TRANSFERS = [70, 50, 16] as const;
 
 export const SCENARIOS: readonly Scenario[] = [
   {
+    ...base,
     id: 'nominal',
     words: 'nominal day, machine known',
     truth: day('known'),
-    every: 1,
     rows: [row('all', 'independent'), row('five', 'independent'), row('three', 'independent')],
-    hours: true,
-    cycle_h: 12.5,
-    healthy: true,
   },
   {
+    ...base,
     id: 'nominal-random',
     words: 'nominal day, machine drawn',
     truth: day('random'),
-    every: 1,
     rows: [row('all', 'class'), row('five', 'class'), row('three', 'class')],
-    hours: true,
-    cycle_h: 12.5,
-    healthy: true,
   },
+  {
+    ...base,
+    id: 'week',
+    words: 'week of partial cycles',
+    truth: {
+      id: 'week',
+      machine: 'random',
+      segments: (g) => scheduleFor('partial', g, 7 * 24 * H),
+      hours_every_min: 180,
+    },
+    every: 3,
+    rows: [row('all', 'class'), row('five', 'class')],
+    cycle_h: 7.5,
+  },
+  {
+    ...base,
+    id: 'standing',
+    words: 'charged, then 36 h standing',
+    truth: {
+      id: 'standing',
+      machine: 'random',
+      segments: (g) => scheduleFor('standing', g, 44 * H),
+      hours_every_min: 120,
+    },
+    rows: [row('all', 'class'), row('five', 'class')],
+    // No discharge is over before the end.
+    cycle_h: 44,
+  },
+  {
+    ...base,
+    id: 'faults',
+    words: 'sensor fault',
+    truth: day('random'),
+    rows: FAULT_ROWS,
+    run: runFaults,
+    figures: faultFigures,
+    hours: false,
+    healthy: false,
+    goals: 'none',
+  },
+  {
+    ...base,
+    id: 'meter-step',
+    words: 'flow meter -7 % from 7 h on',
+    truth: day('random'),
+    rows: [row('all', 'class'), row('five', 'class')],
+    run: runMeterStep,
+    figures: (_, results) => meterStepFigures(results),
+    goals: 'none',
+  },
+  {
+    ...base,
+    id: 'gap',
+    words: 'gap of 3.5 h, unseen change of mode',
+    truth: { id: 'gap', machine: 'random', segments: gap, hours_every_min: null },
+    rows: [row('all', 'independent'), row('five', 'independent'), row('all', 'class')],
+    run: runGap,
+    figures: ({ errors }, results) => gapFigures(errors === 'independent', results),
+    hours: false,
+    goals: 'none',
+  },
+  ...CHANNELS.map(
+    (percent): Scenario => ({
+      ...base,
+      id: `channel-${percent}`,
+      words: `channelling of ${percent} %`,
+      truth: {
+        id: `channel-${percent}`,
+        machine: 'random',
+        segments: cycle,
+        changes: channel(percent / 100),
+        hours_every_min: null,
+      },
+      rows: [row('all', 'independent')],
+      run: plain(false, channellingOwn),
+      figures: (_, results) => channellingFigures(results),
+      hours: false,
+      goals: { soc_rms: 0.2 },
+    }),
+  ),
+  ...TRANSFERS.map(
+    (percent): Scenario => ({
+      ...base,
+      id: `transfer-${percent}`,
+      words: `heat transfer at ${percent} %`,
+      truth: {
+        id: `transfer-${percent}`,
+        machine: 'random',
+        segments: cycle,
+        changes: poorTransfer(percent / 100),
+        hours_every_min: null,
+      },
+      rows: [row('all', 'independent')],
+      run: plain(false, heatTransferOwn),
+      figures: (_, results) => heatTransferFigures(results),
+      hours: false,
+      goals: 'none',
+    }),
+  ),
 ];

@@ -66,7 +66,7 @@ export interface RunOptions {
   readonly faults?: readonly SensorFault[];
   readonly from?: { readonly scan: number; readonly snapshot: UnitSnapshot };
   readonly to?: number;
-  /** Scan before which the state is kept. */
+  /** Scan before which the state is kept in `snapshot`. */
   readonly keep?: number;
   /** Whether hours are asked where the truth knows them. */
   readonly hours: boolean;

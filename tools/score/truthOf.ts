@@ -3,7 +3,7 @@ import { join } from 'node:path';
 import { createTruth, type ScanReadings } from '../../test/plant/truth.js';
 import { folder } from './folder.js';
 import { type HoursTruth, Recording } from './recording.js';
-import type { TruthPlan } from './scenarios.js';
+import type { TruthPlan } from './scenario.js';
 import { TRUTH_COLUMNS, truthRow } from './truthColumns.js';
 import { truthGeometry, withTwins } from './truthPlant.js';
 
@@ -13,7 +13,7 @@ const HOURS_SHARE = 0.6;
 /** The recording of a plan and a seed, from the cache where it is there. */
 export function truthOf(plan: TruthPlan, seed: number, hash: string): Recording {
   const geometry = truthGeometry();
-  const segments = plan.segments(geometry);
+  const segments = plan.segments(geometry, seed);
   const changes = plan.changes?.(seed) ?? [];
   // Plans are part of the name by their content, so that an edited schedule is another truth.
   const content = createHash('sha256')

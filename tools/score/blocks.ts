@@ -1,0 +1,53 @@
+import { figure } from './figure.js';
+import { commonFigures } from './figures.js';
+import type { Scenario } from './scenario.js';
+import { SET_WORDS, unitWith } from './sensorSets.js';
+import type { Block } from './table.js';
+import type { RowResult } from './tally.js';
+
+const ERROR_WORDS = { independent: 'independent offsets', class: 'errors of the class' };
+
+/** The table's blocks: one for each row of each scenario, and one over all healthy rows together. */
+export function blocksOf(
+  scenarios: readonly Scenario[],
+  resultsOf: (scenario: string, row: string) => readonly RowResult[],
+): Block[] {
+  const blocks: Block[] = [];
+  let named = 0;
+  let days = 0;
+  for (const scenario of scenarios) {
+    for (const row of scenario.rows) {
+      const results = resultsOf(scenario.id, row.id);
+      if (results.length === 0) continue;
+      if (scenario.healthy) {
+        named += results.reduce((sum, r) => sum + r.rejections.length, 0);
+        days += results.reduce((sum, r) => sum + r.scored_h, 0) / 24;
+      }
+      const words = row.words === undefined ? scenario.words : `${scenario.words}: ${row.words}`;
+      const rated = { hours: unitWith(row.set, row.errors).rated_hours };
+      blocks.push({
+        scenario: scenario.id,
+        row: row.id,
+        title: `${words}; ${SET_WORDS[row.set]}; ${ERROR_WORDS[row.errors]}`,
+        seeds: results.length,
+        figures: [
+          ...scenario.figures(row, results),
+          ...commonFigures(scenario, row, results, rated),
+        ],
+      });
+    }
+  }
+  if (days > 0) {
+    blocks.push({
+      scenario: 'healthy',
+      row: 'all',
+      title: 'all runs without a faulty thermocouple together',
+      seeds: 0,
+      figures: [
+        figure('sensors wrongly named', named, '', { most: 0 }, `in ${days.toFixed(0)} unit-days`),
+        figure('unit-days', Number(days.toFixed(1)), 'd', { least: 300 }),
+      ],
+    });
+  }
+  return blocks;
+}
