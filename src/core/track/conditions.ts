@@ -125,7 +125,7 @@ export function readConditions(
     state.flowMissing = 0;
   } else {
     state.flowMissing++;
-    standIn = state.flowMissing > HELD_SCANS && Number.isFinite(byPower);
+    standIn = state.flowMissing > HELD_SCANS && told !== 0 && Number.isFinite(byPower);
     flow = standIn ? byPower : state.lastFlow_kg_s;
   }
   const unknown = state.flowMissing > HELD_SCANS && !standIn && told !== 0;
