@@ -8,7 +8,7 @@ import { cellCentres } from '../track/storeEstimate.js';
 import type { StoreModel, StoreState } from '../track/storeTracker.js';
 import { streamsOf } from '../track/streams.js';
 import type { TubeModel, TubeState } from '../track/tube.js';
-import { normalPoints } from './normalPoints.js';
+import { earliestQuantiles } from './earliestQuantiles.js';
 import { type RolloutInput, type RolloutStore, RULES, rollOut } from './rollout.js';
 
 /** What hours are computed from. */
@@ -88,7 +88,7 @@ export function computeHours(input: HoursInput, power_W: number): DispatchAnswer
     MODEL_SIGMA ** 2,
   );
   const mean = live.map((r) => base.times_s[r] as number);
-  return answer(power_W, quantiles(mean, covariance), base.ends_by);
+  return answer(power_W, earliestQuantiles(mean, covariance), base.ends_by);
 }
 
 /** Only the central figure [s of discharge], for a state of charge between full answers. */
@@ -244,44 +244,6 @@ function multiply(p: Float64Array, g: Float64Array, size: number): Float64Array 
     const a = g[i] as number;
     if (a === 0) continue;
     for (let j = 0; j < size; j++) out[j] = (out[j] as number) + a * (p[i * size + j] as number);
-  }
-  return out;
-}
-
-function quantiles(mean: readonly number[], covariance: readonly Float64Array[]): Quantiles {
-  const n = mean.length;
-  const factor = cholesky(covariance);
-  const points = normalPoints();
-  const count = (points[0] as Float64Array).length;
-  const hours = new Float64Array(count);
-  for (let k = 0; k < count; k++) {
-    let least = Number.POSITIVE_INFINITY;
-    for (let a = 0; a < n; a++) {
-      let value = mean[a] as number;
-      for (let b = 0; b <= a; b++) {
-        value += (factor[a]?.[b] as number) * (points[b]?.[k] as number);
-      }
-      least = Math.min(least, value);
-    }
-    hours[k] = Math.max(0, least) / 3600;
-  }
-  hours.sort();
-  const at = (p: number): number => hours[Math.min(count - 1, Math.floor(p * count))] as number;
-  return { p90: at(0.1), p50: at(0.5), p10: at(0.9) };
-}
-
-/** Lower factor of a covariance that may be singular: a vanishing pivot gives a zero column. */
-function cholesky(a: readonly Float64Array[]): Float64Array[] {
-  const n = a.length;
-  const out = a.map(() => new Float64Array(n));
-  for (let j = 0; j < n; j++) {
-    for (let i = j; i < n; i++) {
-      let sum = a[i]?.[j] as number;
-      for (let k = 0; k < j; k++) sum -= (out[i]?.[k] as number) * (out[j]?.[k] as number);
-      const pivot = out[j]?.[j] as number;
-      if (i === j) (out[i] as Float64Array)[j] = Math.sqrt(Math.max(0, sum));
-      else (out[i] as Float64Array)[j] = pivot > 1e-9 ? sum / pivot : 0;
-    }
   }
   return out;
 }
