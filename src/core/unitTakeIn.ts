@@ -65,7 +65,11 @@ export function takeIn(model: UnitModel, state: UnitState, raw: Scan): Taken {
     const energy = storeEnergy(store, storeState);
     const fronts = storeFronts(store, storeState, energy);
     const unknown = state.unknownTravel_m[s] as number;
-    if (step === 'updated' || step === 'reacquired') state.unknownTravel_m[s] = 0;
+    // With the flow still unknown it goes on adding up, until the profile is drawn anew: a filter that
+    // must follow a front it does not expect would bend its factors and offsets to explain it.
+    if (step === 'reacquired' || (step === 'updated' && conditions.flowKnown)) {
+      state.unknownTravel_m[s] = 0;
+    }
     const views = stepViews(
       store,
       storeState,

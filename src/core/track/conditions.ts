@@ -56,6 +56,8 @@ export interface ConditionsState {
   flowMissing: number;
   /** Time without a known flow beyond the two held scans [s]. */
   unknown_s: number;
+  /** Time that running was told with no flow metered and no power read [s]. */
+  idle_s: number;
   /** Scans in which mode channel and flow contradict each other. */
   disagreements: number;
 }
@@ -67,6 +69,7 @@ export function startConditions(): ConditionsState {
     lastFlow_kg_s: 0,
     flowMissing: 0,
     unknown_s: 0,
+    idle_s: 0,
     disagreements: 0,
   };
 }
@@ -85,6 +88,8 @@ export interface Conditions {
 
 const HELD_SCANS = 2;
 const STAND_SCANS = 2;
+/** A machine that is told to run may take this long until gas flows [s]; common practice, no source. */
+const START_UP_S = 600;
 /** With no news of the flow its expected value fades with this time constant [s]. */
 const FADE_S = 3600;
 
@@ -128,8 +133,8 @@ export function readConditions(
     standIn = state.flowMissing > HELD_SCANS && told !== 0 && Number.isFinite(byPower);
     flow = standIn ? byPower : state.lastFlow_kg_s;
   }
-  const unknown = state.flowMissing > HELD_SCANS && !standIn && told !== 0;
-  if (unknown) {
+  const missing = state.flowMissing > HELD_SCANS && !standIn && told !== 0;
+  if (missing) {
     state.unknown_s += dt_s;
     flow =
       told === null
@@ -145,7 +150,12 @@ export function readConditions(
   const against = told !== null && told !== 0 && !standing && Math.sign(flow) !== told;
   // A meter without a sense has its flow signed by what is told, so only its size can contradict.
   const unsigned = at(map.flowUnsigned) >= unit.estimator.stand_flow_kg_s;
-  if (refuted || against || (told === 0 && (!standing || unsigned))) state.disagreements++;
+  // Running is told, no flow is metered, and no power tells which of the two is right.
+  const doubtful =
+    hasMeter && told !== null && told !== 0 && Number.isNaN(power_W) && Number.isFinite(metered);
+  state.idle_s = doubtful && standing ? state.idle_s + dt_s : 0;
+  const idle = state.idle_s > START_UP_S;
+  if (refuted || against || idle || (told === 0 && (!standing || unsigned))) state.disagreements++;
 
   if (told !== null && told !== 0) state.mode = told > 0 ? 'charge' : 'discharge';
   else if (told === 0) state.mode = 'stand';
@@ -155,7 +165,7 @@ export function readConditions(
   return {
     mode: state.mode,
     flow_kg_s: state.belowStand >= STAND_SCANS ? 0 : flow,
-    flowKnown: !unknown,
+    flowKnown: !missing && !idle,
     flowStandIn: standIn,
     power_W,
     ambient_K,

@@ -62,6 +62,8 @@ export function addProcessNoise(
   }
   if (drive.travelSigma_m > 0) {
     addRankOne(p, size, cells, slope, drive.travelSigma_m * drive.travelSigma_m * drive.scans);
+    // Nor does a front that moves unseen keep its shape.
+    addShapeNoise(p, size, cells, dx, slope, adapt * drive.travelSigma_m * drive.scans);
   }
   if (drive.inletSigma_K > 0 && flowing) {
     addInletNoise(p, size, cells, scratch, drive);
