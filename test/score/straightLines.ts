@@ -10,6 +10,8 @@ import type {
 const POINTS = 300;
 /** Least discharge from which a heat rate is taken, as time at rated power [s]. */
 const LEARN_S = 1800;
+/** A reading this far beyond the reference temperatures is no temperature of the bed [K]. */
+const BEYOND_K = 80;
 /** Above this share of the greatest flow the unit runs. */
 const RUNNING_SHARE = 0.02;
 
@@ -33,7 +35,7 @@ interface Store {
 
 /**
  * What a plant man reckons without a model of the bed: straight lines between the thermocouples of a
- * string, on to the gas at both ends while it flows; heat by the table of the rock; hours as heat over
+ * string, on to the gas at both ends while it flows, without readings that no bed can have; heat by the table of the rock; hours as heat over
  * heat rate. The rate at a power is what the last discharge took of heat per unit of electricity, and
  * before the first that of the plant's rating: a full store lasts the rated hours at rated power.
  */
@@ -131,6 +133,9 @@ export class StraightLines {
   /** Share of the heat between the references that straight lines hold; NaN without any reading. */
   private sum(store: Store, values: Float64Array, flowing: boolean): number {
     const { length_m } = store.definition.bed;
+    const { reference_hot_K, reference_cold_K } = store.definition;
+    const possible = (T: number) =>
+      T > reference_cold_K - BEYOND_K && T < reference_hot_K + BEYOND_K;
     const ends = (['charge_inlet', 'discharge_inlet'] as const).map((end) => {
       const read = flowing && store.gas[end] >= 0 ? values[store.gas[end]]! : Number.NaN;
       return { x: end === 'charge_inlet' ? 0 : length_m, T: read };
@@ -139,8 +144,8 @@ export class StraightLines {
     let shares = 0;
     for (const string of store.strings) {
       const inside = string.channels.map((c, i) => ({ x: string.positions_m[i]!, T: values[c]! }));
-      const points = [ends[0]!, ...inside, ends[1]!].filter((p) => Number.isFinite(p.T));
-      if (!inside.some((p) => Number.isFinite(p.T))) continue;
+      const points = [ends[0]!, ...inside, ends[1]!].filter((p) => possible(p.T));
+      if (!inside.some((p) => possible(p.T))) continue;
       total += string.share * this.charged(store, points);
       shares += string.share;
     }

@@ -6,6 +6,8 @@ export interface Figure {
   /** What the goal is, in words; null where there is none. */
   readonly target: string | null;
   readonly met: boolean | null;
+  /** The goal holds for each single run, not only for many together. */
+  readonly each: boolean;
   readonly note: string;
 }
 
@@ -13,6 +15,7 @@ export interface Figure {
 export interface Goal {
   readonly least?: number;
   readonly most?: number;
+  readonly each?: boolean;
 }
 
 /** A figure with its goal, if it has one; a figure that could not be had misses it. */
@@ -21,9 +24,9 @@ export function figure(
   value: number | null,
   unit: string,
   goal: Goal | null = null,
-  note = '',
+  note: string | undefined = '',
 ): Figure {
-  if (goal === null) return { name, value, unit, target: null, met: null, note };
+  if (goal === null) return { name, value, unit, target: null, met: null, each: false, note };
   const { least, most } = goal;
   const target =
     least === undefined ? `<= ${most}` : most === undefined ? `>= ${least}` : `${least}..${most}`;
@@ -31,7 +34,7 @@ export function figure(
     value !== null &&
     value <= (most ?? Number.POSITIVE_INFINITY) &&
     value >= (least ?? Number.NEGATIVE_INFINITY);
-  return { name, value, unit, target, met, note };
+  return { name, value, unit, target, met, each: goal.each ?? false, note };
 }
 
 /** Numbers of one name that the runs left behind, without those that have none. */

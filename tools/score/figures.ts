@@ -1,9 +1,10 @@
-import { type Figure, figure, rms } from './figure.js';
+import { type Figure, figure, type Goal, rms } from './figure.js';
 import type { RowPlan, Scenario } from './scenario.js';
 import { bestShiftedPinball, binomialInterval, pinball } from './statistics.js';
 import { type HoursSample, mergeSum, type RowResult, rmsOf, type Sum, sumOf } from './tally.js';
 
-const RATIO = [0.8, 1.25] as const;
+/** Truth over sigma as rms. */
+const RATIO: Goal = { least: 0.8, most: 1.25 };
 
 /** Sums of all runs of a row together. */
 export function pooled(results: readonly RowResult[]): Record<string, Sum> {
@@ -16,7 +17,10 @@ export function pooled(results: readonly RowResult[]): Record<string, Sum> {
   return sums;
 }
 
-/** Figures that every row has. */
+/**
+ * Figures that every row has: errors, sigmas and hours in full where the goals for the sensor set
+ * hold, and the errors of the state of charge for scenarios with goals of their own.
+ */
 export function commonFigures(
   scenario: Scenario,
   row: RowPlan,
@@ -25,67 +29,69 @@ export function commonFigures(
 ): Figure[] {
   const sums = pooled(results);
   const goals = goalsOf(scenario, row);
-  const only = typeof scenario.goals === 'object' ? { most: scenario.goals.soc_rms } : null;
-  const at = (name: string) => sums[name]?.at ?? '';
-  const worst = (name: string) => (sums[name] ? Math.abs(sums[name].worst) : null);
-  const out: Figure[] = [];
-  const apart = row.errors === 'class';
-  if (apart) {
-    for (const store of ['hot', 'cold'] as const) {
-      const goal = goals && { most: goals.class[store] };
-      out.push(figure(`state of charge, ${store}, rms`, rmsOf(sums[`soc ${store}`]), '%', goal));
-    }
-  } else {
+  const out = [...chargeFigures(scenario, row, sums)];
+  const ratios: [name: string, words: string, goal: Goal | null][] = [
+    ['soc', 'state of charge', goals && RATIO],
+  ];
+  if (scenario.goals === 'sensors') {
     out.push(
-      figure('state of charge, rms', rmsOf(sums.soc), '%', goals ? { most: goals.soc[0] } : only),
-    );
-  }
-  out.push(
-    figure(
-      'state of charge, worst',
-      worst('soc'),
-      '%',
-      goals && !apart ? { most: goals.soc[1] } : null,
-      at('soc'),
-    ),
-    figure('  straight lines, rms', rmsOf(sums['line soc']), '%'),
-    figure('  straight lines, worst', worst('line soc'), '%', null, at('line soc')),
-    figure('  rock at the strings against the store, rms', rmsOf(sums['seen soc']), '%'),
-    figure('stored heat, rms', rmsOf(sums.stored), 'MWh_th', null, at('stored')),
-    figure('front position, rms', rmsOf(sums.position), 'm', goals && { most: goals.position }),
-    figure('front width, rms', rmsOf(sums.width), 'm'),
-    figure(
-      'fronts counted differently',
-      share(results.map((r) => ({ hits: r.fronts.unmatched, cases: r.fronts.all }))),
-      '%',
-    ),
-  );
-  for (const [name, words, goal] of [
-    ['soc', 'state of charge', true],
-    ['stored', 'stored heat', true],
-    ['position', 'front position', false],
-  ] as const) {
-    out.push(
+      figure('stored heat, rms', rmsOf(sums.stored), 'MWh_th', null, sums.stored?.at),
+      figure('front position, rms', rmsOf(sums.position), 'm', goals && { most: goals.position }),
+      figure('front width, rms', rmsOf(sums.width), 'm'),
       figure(
-        `truth over sigma, ${words}, rms`,
-        rmsOf(sums[`${name}/sigma`]),
-        '',
-        goals && goal ? { least: RATIO[0], most: RATIO[1] } : null,
-        at(`${name}/sigma`),
+        'fronts counted differently',
+        share(results.map((r) => ({ hits: r.fronts.unmatched, cases: r.fronts.all }))),
+        '%',
       ),
     );
+    ratios.push(['stored', 'stored heat', goals && RATIO], ['position', 'front position', null]);
+  }
+  for (const [name, words, goal] of ratios) {
+    const sum = sums[`${name}/sigma`];
+    out.push(figure(`truth over sigma, ${words}, rms`, rmsOf(sum), '', goal, sum?.at));
   }
   if (scenario.hours) out.push(...hoursFigures(scenario, row, results, sums, rated.hours));
-  const healthy = results.reduce((sum, r) => sum + r.rejections.length, 0);
-  const days = results.reduce((sum, r) => sum + r.scored_h, 0) / 24;
   if (scenario.healthy) {
-    out.push(
-      figure('sensors wrongly named', healthy, '', { most: 0 }, `in ${days.toFixed(0)} unit-days`),
-    );
+    const named = results.reduce((sum, r) => sum + r.rejections.length, 0);
+    const days = results.reduce((sum, r) => sum + r.scored_h, 0) / 24;
+    out.push(figure('sensors wrongly named', named, '', ZERO, `in ${days.toFixed(1)} unit-days`));
   }
   const broken = results.reduce((sum, r) => sum + r.not_finite, 0);
-  out.push(figure('estimates that are not finite', broken, '', { most: 0 }));
+  if (broken > 0) out.push(figure('estimates that are not finite', broken, '', ZERO));
   return out;
+}
+
+const ZERO: Goal = { most: 0, each: true };
+
+function chargeFigures(scenario: Scenario, row: RowPlan, sums: Record<string, Sum>): Figure[] {
+  const goals = goalsOf(scenario, row);
+  const only = typeof scenario.goals === 'object' ? { most: scenario.goals.soc_rms } : null;
+  const worstOf = (name: string, words: string, goal: Goal | null) => {
+    const sum = sums[name];
+    return figure(words, sum ? Math.abs(sum.worst) : null, '%', goal, sum?.at);
+  };
+  const apart = row.errors === 'class' && scenario.goals === 'sensors';
+  const own = apart
+    ? (['hot', 'cold'] as const).map((store) =>
+        figure(
+          `state of charge, ${store}, rms`,
+          rmsOf(sums[`soc ${store}`]),
+          '%',
+          goals && { most: goals.class[store] },
+        ),
+      )
+    : [figure('state of charge, rms', rmsOf(sums.soc), '%', goals ? { most: goals.soc[0] } : only)];
+  return [
+    ...own,
+    worstOf(
+      'soc',
+      'state of charge, worst',
+      goals && !apart ? { most: goals.soc[1], each: true } : null,
+    ),
+    figure('  straight lines, rms', rmsOf(sums['line soc']), '%'),
+    worstOf('line soc', '  straight lines, worst', null),
+    figure('  rock at the strings against the store, rms', rmsOf(sums['seen soc']), '%'),
+  ];
 }
 
 /** What is to be reached with each sensor set; state of charge and hours as rms (and worst). */
@@ -157,7 +163,7 @@ function hoursFigures(
       'truth over sigma, hours, rms',
       rmsOf(sums['hours/sigma']),
       '',
-      goals && { least: RATIO[0], most: RATIO[1] },
+      goals && RATIO,
       sums['hours/sigma']?.at ?? '',
     ),
   ];

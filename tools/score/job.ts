@@ -1,7 +1,7 @@
 import { existsSync, mkdirSync, readFileSync, renameSync, writeFileSync } from 'node:fs';
 import { join } from 'node:path';
 import { folder } from './folder.js';
-import { SCENARIOS } from './scenarios.js';
+import { ALL_SCENARIOS } from './scenarios.js';
 import type { RowResult } from './tally.js';
 import { truthOf } from './truthOf.js';
 
@@ -33,7 +33,7 @@ export function resultOf(
 
 /** Runs a job and keeps its results, one file each: what is there survives an interruption. */
 export function runJob(job: Job, hashes: Hashes): void {
-  const scenario = SCENARIOS.find((s) => s.id === job.scenario);
+  const scenario = ALL_SCENARIOS.find((s) => s.id === job.scenario);
   if (!scenario) throw new RangeError(`no scenario ${job.scenario}`);
   const recording = truthOf(scenario.truth, job.seed, hashes.truth);
   const rows = scenario.rows.filter((row) => job.rows.includes(row.id));

@@ -11,14 +11,14 @@ const WORKERS = 2;
 export async function runJobs(
   jobs: readonly Job[],
   hashes: Hashes,
-  done: (job: Job) => void,
+  done: (job: Job, cpu_s: number) => void,
 ): Promise<{ job: Job; error: string }[]> {
   const waiting = [...jobs];
   const failures: { job: Job; error: string }[] = [];
   const workers = Array.from({ length: Math.min(WORKERS, jobs.length) }, () =>
-    work(waiting, hashes, (job, error) => {
+    work(waiting, hashes, (job, cpu_s, error) => {
       if (error !== undefined) failures.push({ job, error });
-      done(job);
+      done(job, cpu_s);
     }),
   );
   await Promise.all(workers);
@@ -28,7 +28,7 @@ export async function runJobs(
 function work(
   waiting: Job[],
   hashes: Hashes,
-  done: (job: Job, error?: string) => void,
+  done: (job: Job, cpu_s: number, error?: string) => void,
 ): Promise<void> {
   const file = fileURLToPath(new URL('worker.ts', import.meta.url));
   const child: ChildProcess = fork(file, { execArgv: ['--import', 'tsx'] });
@@ -39,12 +39,12 @@ function work(
       if (running) child.send({ job: running, hashes });
       else child.disconnect();
     };
-    child.on('message', ({ job, error }: { job: Job; error?: string }) => {
-      done(job, error);
+    child.on('message', (answer: { job: Job; cpu_s?: number; error?: string }) => {
+      done(answer.job, answer.cpu_s ?? 0, answer.error);
       next();
     });
     child.on('exit', (code, signal) => {
-      if (running) done(running, `its process ended: ${signal ?? code}`);
+      if (running) done(running, 0, `its process ended: ${signal ?? code}`);
       resolve();
     });
     next();

@@ -110,7 +110,8 @@ export const SCENARIOS: readonly Scenario[] = [
     words: 'sensor fault',
     truth: day('random'),
     rows: FAULT_ROWS,
-    run: runFaults,
+    // To the end of the first discharge.
+    run: runFaults(12.5),
     figures: faultFigures,
     hours: false,
     healthy: false,
@@ -176,3 +177,41 @@ export const SCENARIOS: readonly Scenario[] = [
     }),
   ),
 ];
+
+const short = {
+  id: 'quick-cycle',
+  machine: 'random',
+  segments: cycle,
+  hours_every_min: 120,
+} as const;
+const QUICK_FAULTS = ['open', 'stuck', 'offset', 'swapped', 'card'];
+
+/** Short scenarios whose goals for each single run are part of the tests. */
+export const QUICK: readonly Scenario[] = [
+  {
+    ...base,
+    id: 'quick-cycle',
+    words: 'one cycle, machine drawn',
+    truth: short,
+    rows: [row('all', 'independent'), row('five', 'independent')],
+    cycle_h: 9.5,
+  },
+  {
+    ...base,
+    id: 'quick-faults',
+    words: 'sensor fault',
+    truth: short,
+    rows: FAULT_ROWS.filter((r) => QUICK_FAULTS.includes(r.id)),
+    run: runFaults(7.5),
+    figures: faultFigures,
+    hours: false,
+    healthy: false,
+    goals: 'none',
+  },
+  ...['gap', 'channel-22', 'transfer-16'].map((id): Scenario => {
+    const long = SCENARIOS.find((s) => s.id === id)!;
+    return { ...long, id: `quick-${id}`, rows: long.rows.slice(0, 1) };
+  }),
+];
+
+export const ALL_SCENARIOS: readonly Scenario[] = [...SCENARIOS, ...QUICK];

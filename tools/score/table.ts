@@ -17,7 +17,10 @@ export function tableText(blocks: readonly Block[]): string {
     `${'figure'.padEnd(NAME)}${'value'.padStart(9)} ${'unit'.padEnd(11)}${'target'.padEnd(14)}`,
   ];
   for (const block of blocks) {
-    lines.push('', `== ${block.title}${block.seeds > 0 ? ` (${block.seeds} seeds)` : ``}`);
+    lines.push(
+      '',
+      `== ${block.title}${block.seeds > 0 ? ` (${block.seeds} seed${block.seeds === 1 ? '' : 's'})` : ``}`,
+    );
     for (const f of block.figures) {
       const mark = f.met === null ? '' : f.met ? 'met' : 'MISSED';
       const start = `${f.name.padEnd(NAME)}${numberText(f.value).padStart(9)} ${f.unit.padEnd(11)}`;

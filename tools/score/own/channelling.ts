@@ -49,6 +49,7 @@ export function channellingFigures(results: readonly RowResult[]): Figure[] {
   return [
     figure('flow factors after the first charge, worst', worst(all('flow worst')), '', {
       most: 0.03,
+      each: true,
     }),
     figure('  the same, rms', rms(all('flow rms')), ''),
   ];

@@ -41,6 +41,7 @@ export function heatTransferFigures(results: readonly RowResult[]): Figure[] {
     figure('  error, rms', rms(all('relative')), '%'),
     figure('sigma of the factor over its value, worst', worst(all('sigma share')), '%', {
       most: 35,
+      each: true,
     }),
     figure('  the same, median', median(all('sigma share')), '%'),
   ];

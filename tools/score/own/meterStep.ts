@@ -54,7 +54,10 @@ export function meanFlow(series: Series, id: string, n: number): number {
 export function meterStepFigures(results: readonly RowResult[]): Figure[] {
   const errors = ['hot', 'cold'].flatMap((id) => ownValues(results, `step ${id}`));
   return [
-    figure('step found after one cycle, worst error', worst(errors), '%', { most: 1.5 }),
+    figure('step found after one cycle, worst error', worst(errors), '%', {
+      most: 1.5,
+      each: true,
+    }),
     figure('  the same, rms', rms(errors), '%'),
   ];
 }
