@@ -209,6 +209,100 @@ describe('a flow from power', () => {
   });
 });
 
+describe('a meter that is silent or refuted', () => {
+  const roles = { flow: FLOW, mode: MODE, power: POWER };
+  const CHARGING = { mode: 1, power: 90e3 };
+  const DISCHARGING = { mode: -1, power: -50e3 };
+  const byPower = (readings: { mode: number; power: number }): number => {
+    const { machine, unit } = plant(roles);
+    const way = readings.mode > 0 ? 'charge' : 'discharge';
+    const answer = machine.flowForPower(
+      way,
+      Math.abs(readings.power),
+      OUTLETS[way],
+      unit.ambient_K,
+    );
+    if (!('flow_kg_s' in answer)) throw new Error(answer.reason);
+    return readings.mode * answer.flow_kg_s;
+  };
+
+  it('is stood in for by power after two held scans, and that is told', () => {
+    const { read } = plant(roles);
+    expect(read({ ...CHARGING, flow: 1.1 }).flowStandIn).toBe(false);
+    for (let n = 0; n < 2; n++) {
+      expect(read(CHARGING)).toMatchObject({ flow_kg_s: 1.1, flowStandIn: false });
+    }
+    for (const readings of [CHARGING, DISCHARGING]) {
+      expect(read(readings)).toMatchObject({
+        flow_kg_s: byPower(readings),
+        flowStandIn: true,
+        flowKnown: true,
+      });
+    }
+    expect(read({ ...CHARGING, flow: 1.1 })).toMatchObject({ flow_kg_s: 1.1, flowStandIn: false });
+  });
+
+  it.each([
+    ['shows no flow', 0],
+    ['shows the other direction', -1],
+  ])('is refuted where it %s while mode and power agree', (_, flow) => {
+    const { read, state } = plant(roles);
+    for (let n = 0; n < 3; n++) read({ ...CHARGING, flow });
+    expect(read({ ...CHARGING, flow })).toMatchObject({
+      flow_kg_s: byPower(CHARGING),
+      flowStandIn: true,
+    });
+    expect(state.disagreements).toBe(4);
+  });
+
+  it('is refuted where it shows a flow while a stand is told and no power is drawn', () => {
+    const { read } = plant(roles);
+    read({ ...CHARGING, flow: 1 });
+    const standing = { mode: 0, power: 300, flow: 1 };
+    for (let n = 0; n < 4; n++) read(standing);
+    expect(read(standing)).toMatchObject({ flow_kg_s: 0, flowKnown: true, mode: 'stand' });
+  });
+
+  it('is believed where it shows a small flow while a stand is told: a valve may leak', () => {
+    const { read, unit } = plant(roles);
+    const leak = 2 * unit.estimator.stand_flow_kg_s;
+    for (let n = 0; n < 4; n++) read({ mode: 0, power: 300, flow: leak });
+    expect(read({ mode: 0, power: 300, flow: leak }).flow_kg_s).toBe(leak);
+  });
+
+  it('is believed against power alone in its direction, and refuted by it where it shows no flow', () => {
+    const { read } = plant({ flow: FLOW, power: POWER });
+    for (let n = 0; n < 4; n++) {
+      expect(read({ flow: -1, power: 90e3 })).toMatchObject({ flow_kg_s: -1, flowStandIn: false });
+    }
+    for (let n = 0; n < 3; n++) read({ flow: 0, power: 90e3 });
+    expect(read({ flow: 0, power: 90e3 })).toMatchObject({ mode: 'charge', flowStandIn: true });
+  });
+
+  it('leaves the last flow, in the direction told, where power is silent as well', () => {
+    const { read } = plant(roles);
+    read({ ...CHARGING, flow: 1.1 });
+    for (let n = 0; n < 3; n++) read({ mode: 1 });
+    expect(read({ mode: 1 })).toMatchObject({ flow_kg_s: 1.1, flowKnown: false });
+    for (let n = 0; n < 3; n++) read({ mode: 0 });
+    expect(read({ mode: -1 })).toMatchObject({ flow_kg_s: -1.1, flowKnown: false });
+  });
+
+  it('is in doubt where it shows no flow for over ten minutes of a run that is told, without power', () => {
+    const { read } = plant(roles);
+    for (let n = 0; n < 10; n++) expect(read({ mode: 1, flow: 0 }).flowKnown).toBe(true);
+    expect(read({ mode: 1, flow: 0 })).toMatchObject({ flow_kg_s: 0, flowKnown: false });
+    expect(read({ mode: 1, flow: 1 }).flowKnown).toBe(true);
+  });
+
+  it('is not stood in for by a power that no flow of this plant explains', () => {
+    const { read } = plant(roles);
+    read({ ...CHARGING, flow: 1.1 });
+    for (let n = 0; n < 3; n++) read({ mode: 1, power: 2e6 });
+    expect(read({ mode: 1, power: 2e6 }).flowKnown).toBe(false);
+  });
+});
+
 describe('contradictions', () => {
   it('are counted where mode and flow have opposite signs or a told stand has flow', () => {
     const { read, state } = plant({ flow: FLOW, mode: MODE });
