@@ -1,7 +1,7 @@
-import { mkdirSync } from 'node:fs';
+import { existsSync, mkdirSync } from 'node:fs';
 import { dirname } from 'node:path';
 import SQLite from 'better-sqlite3';
-import { RockhourError, reasonOf } from '../../errors.js';
+import { fileReasonOf, RockhourError } from '../../errors.js';
 
 export type Database = SQLite.Database;
 
@@ -15,13 +15,29 @@ export type Durability = 'full' | 'normal';
 export type Migrations = readonly string[];
 
 /**
+ * Makes a folder and those above it. Not `recursive`: where a folder can never be made, as below
+ * /proc, that of Node 20 tries for ever.
+ */
+export function makeFolder(folder: string): void {
+  if (existsSync(folder)) return;
+  const above = dirname(folder);
+  if (above !== folder) makeFolder(above);
+  try {
+    mkdirSync(folder);
+  } catch (thrown) {
+    // Another process may have been faster.
+    if (!existsSync(folder)) throw thrown;
+  }
+}
+
+/**
  * Opens (or makes) a database file in WAL mode and brings its schema up to date.
  * @throws RockhourError STORE_FAILED where the folder, the disk or the file is at fault
  */
 export function openDatabase(file: string, durability: Durability, steps: Migrations): Database {
   let database: Database | null = null;
   try {
-    mkdirSync(dirname(file), { recursive: true });
+    makeFolder(dirname(file));
     database = new SQLite(file, { timeout: 2000 });
     database.pragma('journal_mode = WAL');
     database.pragma(`synchronous = ${durability === 'full' ? 'FULL' : 'NORMAL'}`);
@@ -64,10 +80,14 @@ export function storeFailure(what: string, thrown: unknown): RockhourError {
   if (thrown instanceof RockhourError) return thrown;
   const code = codeOf(thrown);
   const known = Object.keys(ADVICE).find((name) => code.startsWith(name));
-  return new RockhourError('STORE_FAILED', `${what}: ${reasonOf(thrown)}${code && ` (${code})`}`, {
-    cause: thrown,
-    ...(known === undefined ? {} : { advice: ADVICE[known]! }),
-  });
+  return new RockhourError(
+    'STORE_FAILED',
+    `${what}: ${fileReasonOf(thrown)}${code && ` (${code})`}`,
+    {
+      cause: thrown,
+      ...(known === undefined ? {} : { advice: ADVICE[known]! }),
+    },
+  );
 }
 
 function codeOf(thrown: unknown): string {

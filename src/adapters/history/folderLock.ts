@@ -1,8 +1,7 @@
-import { mkdirSync } from 'node:fs';
 import { join } from 'node:path';
 import SQLite from 'better-sqlite3';
 import { RockhourError } from '../../errors.js';
-import { type Database, storeFailure } from './database.js';
+import { type Database, makeFolder, storeFailure } from './database.js';
 
 /**
  * Keeps a second rockhour out of a folder: two would write the same journal twice. Held by a lock
@@ -18,7 +17,7 @@ export class FolderLock {
     if (this.database) return;
     let database: Database | null = null;
     try {
-      mkdirSync(this.folder, { recursive: true });
+      makeFolder(this.folder);
       database = new SQLite(join(this.folder, 'lock.sqlite'), { timeout: 0 });
       database.exec('BEGIN EXCLUSIVE');
     } catch (thrown) {

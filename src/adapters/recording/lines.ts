@@ -1,6 +1,6 @@
 import { createWriteStream, type WriteStream } from 'node:fs';
 import { finished } from 'node:stream/promises';
-import { RockhourError, reasonOf } from '../../errors.js';
+import { fileReasonOf, RockhourError } from '../../errors.js';
 
 /** Resolves when a stream takes more, or will never again. */
 function roomIn(stream: WriteStream | NodeJS.WriteStream): Promise<void> {
@@ -69,10 +69,10 @@ export class LineWriter {
 
   private check(): void {
     if (this.failure === null) return;
-    const name = this.path === '-' ? 'standard output' : this.path;
+    const name = this.path === '-' ? 'standard output' : `the output ${this.path || '""'}`;
     throw new RockhourError(
       'OUTPUT_UNWRITABLE',
-      `${name} cannot be written: ${reasonOf(this.failure)}`,
+      `${name} cannot be written: ${fileReasonOf(this.failure)}`,
       { cause: this.failure },
     );
   }

@@ -2,7 +2,7 @@ import { createReadStream } from 'node:fs';
 import { rawToSi, voltageFinish } from '../../core/scan/convert.js';
 import { type HoldState, hold, startHold } from '../../core/scan/hold.js';
 import type { Scan } from '../../core/scan/scan.js';
-import { RockhourError, reasonOf } from '../../errors.js';
+import { fileReasonOf, RockhourError } from '../../errors.js';
 import { type Columns, type RecordedUnit, readHeader } from './columns.js';
 import { CsvFault, CsvParser, type CsvRecord } from './csv.js';
 import { parseField } from './fields.js';
@@ -111,7 +111,7 @@ export class RecordingReader {
     } catch (error) {
       throw new RockhourError(
         'RECORDING_UNREADABLE',
-        `the recording ${this.path} cannot be read: ${reasonOf(error)}`,
+        `the recording ${this.path || '""'} cannot be read: ${fileReasonOf(error)}`,
         { cause: error },
       );
     } finally {
