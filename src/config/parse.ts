@@ -6,7 +6,7 @@ import { lineOf } from './locate.js';
 import { repair, restsOn } from './repair.js';
 import { resolveSite } from './resolve.js';
 import { type SiteBlock, siteSchema } from './schema/site.js';
-import { readSecrets } from './secrets.js';
+import { readSecrets, type SecretFault } from './secrets.js';
 import type { SiteConfig } from './site.js';
 import { type RawFault, structureFaults } from './structure.js';
 
@@ -33,7 +33,7 @@ export function parseSite(
   const document = parseDocument(text, { lineCounter: lines, prettyErrors: false });
   if (document.errors.length > 0) {
     return {
-      faults: document.errors.map((error) => yamlFault(error, lines)),
+      faults: firstCauses(document.errors, lines).map((error) => yamlFault(error, lines)),
       more_may_follow: true,
     };
   }
@@ -62,16 +62,28 @@ export function parseSite(
     if (mended === null) return { faults: located(structural), more_may_follow: true };
     const block = siteSchema.parse(mended.data);
     const concluded = crossFaults(block).filter((f) => !restsOn(f.about, mended.invented));
-    return { faults: located([...structural, ...concluded]), more_may_follow: false };
+    const unread = readSecrets(block, baseFolder, environment)
+      .faults.filter((f) => !restsOn([f.path], mended.invented))
+      .map(asRaw);
+    return { faults: located([...structural, ...concluded, ...unread]), more_may_follow: false };
   }
   const block: SiteBlock = sound.data;
   const { secrets, faults: secretFaults } = readSecrets(block, baseFolder, environment);
-  const raw = [
-    ...crossFaults(block),
-    ...secretFaults.map((f) => ({ ...f, atKey: false, hint: null })),
-  ];
+  const raw = [...crossFaults(block), ...secretFaults.map(asRaw)];
   if (raw.length > 0) return { faults: located(raw), more_may_follow: false };
   return { site: deepFreeze(resolveSite(block, baseFolder, secrets)) };
+}
+
+function asRaw(fault: SecretFault): RawFault {
+  return { ...fault, atKey: false, hint: null };
+}
+
+/** One error a line, and tabs alone where there are any: what follows from them is not a fault. */
+function firstCauses(errors: readonly YAMLError[], lines: LineCounter): YAMLError[] {
+  const tabs = errors.filter(({ code }) => code === 'TAB_AS_INDENT');
+  const causes = tabs.length > 0 ? tabs : errors;
+  const lineOfError = (error: YAMLError) => lines.linePos(error.pos[0]).line;
+  return causes.filter((one, i) => i === 0 || lineOfError(one) !== lineOfError(causes[i - 1]!));
 }
 
 function wholeFile(found: string): Fault {
