@@ -9,6 +9,7 @@ export const EXIT_CODES = {
   usage: { code: 2, meaning: 'the command line or the configuration is wrong' },
   input: { code: 3, meaning: 'a recording cannot be used' },
   outside: { code: 4, meaning: 'a service, a port or the disk refused or did not answer' },
+  interrupted: { code: 130, meaning: 'stopped by a signal before its work was done' },
   internal: { code: 70, meaning: 'a fault of rockhour itself' },
 } as const;
 export type ExitName = keyof typeof EXIT_CODES;
@@ -93,6 +94,11 @@ export const ERRORS = {
     meaning: 'The local store (SQLite) cannot be opened or written.',
     advice: 'Check store.folder, its permissions and the room on the disk.',
   },
+  INTERRUPTED: {
+    exit: 'interrupted',
+    meaning: 'A command was stopped by a signal before it had done its work.',
+    advice: 'What it has written so far is whole; run it again for all of it.',
+  },
   INTERNAL: {
     exit: 'internal',
     meaning: 'Something happened that rockhour does not expect: a fault of its own.',
@@ -127,6 +133,24 @@ export class RockhourError extends Error {
 export function reasonOf(thrown: unknown): string {
   if (thrown instanceof Error) return thrown.message || thrown.name;
   return String(thrown);
+}
+
+/** Failures of the file system in words; the path stands in the message already. */
+const FILE_WORDS: Readonly<Record<string, string>> = {
+  ENOENT: 'no such file or folder',
+  EISDIR: 'it is a folder',
+  ENOTDIR: 'a part of its path is a file, not a folder',
+  EEXIST: 'there is a file of this name',
+  EACCES: 'permission denied',
+  EPERM: 'permission denied',
+  EROFS: 'the file system is read-only',
+  ENOSPC: 'no room on the disk',
+};
+
+/** What the file system said of a file, without repeating its path. */
+export function fileReasonOf(thrown: unknown): string {
+  const { code } = thrown as { code?: unknown };
+  return (typeof code === 'string' ? FILE_WORDS[code] : undefined) ?? reasonOf(thrown);
 }
 
 /** Replaces the user name and password of any URL in a text, which may go to a log or a screen. */

@@ -17,13 +17,20 @@ export interface LogOptions {
   readonly destination?: DestinationStream;
 }
 
+/** A daemon whose log nobody reads any more still has a plant to watch. */
+function standardError(): DestinationStream {
+  const target = pino.destination({ fd: 2, sync: true });
+  target.on('error', () => undefined);
+  return target;
+}
+
 /**
  * The log of a process: one JSON line per entry, or coloured text on a terminal. Passwords,
  * tokens and the credentials inside URLs are masked wherever they stand in an entry.
  */
 export function createLog(options: LogOptions = {}): Log {
   const forPeople = options.pretty ?? (options.destination === undefined && process.stderr.isTTY);
-  const target = options.destination ?? pino.destination({ fd: 2, sync: true });
+  const target = options.destination ?? standardError();
   return pino(
     {
       level: options.level ?? 'info',

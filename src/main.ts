@@ -5,7 +5,7 @@ import { closingHelp } from './commands/help.js';
 import { register as registerHours } from './commands/hours.js';
 import { register as registerReplay } from './commands/replay.js';
 import { packageVersion, register as registerRun } from './commands/run.js';
-import { EXIT_CODES, exitCodeOf, explain } from './errors.js';
+import { EXIT_CODES, exitCodeOf, explain, RockhourError } from './errors.js';
 
 /** In the order of the help. */
 const COMMANDS = [registerRun, registerDemo, registerReplay, registerHours, registerCheck];
@@ -16,12 +16,21 @@ function fail(thrown: unknown): void {
   process.exitCode = exitCodeOf(thrown);
 }
 
+/** commander prints help and version itself, also where a command is missing. */
+function commandLineFailed({ code, exitCode, message }: CommanderError): void {
+  if (exitCode === 0) return;
+  if (code === 'commander.help') process.exitCode = EXIT_CODES.usage.code;
+  else fail(new RockhourError('USAGE', message.replace(/^error: /, '').replace('\n', ' ')));
+}
+
 function createProgram(): Command {
   const program = new Command('rockhour')
     .description('Front positions, stored energy and remaining hours of packed-bed thermal stores')
     .version(packageVersion())
     .addHelpText('after', closingHelp())
     .showSuggestionAfterError()
+    // What is wrong with a command line is said by `fail`, as everything that is wrong.
+    .configureOutput({ outputError: () => undefined })
     .exitOverride();
   for (const register of COMMANDS) register(program);
   return program;
@@ -33,6 +42,8 @@ process.stdout.on('error', (error: NodeJS.ErrnoException) => {
   fail(error);
   process.exit();
 });
+// Whoever read the messages is gone; the work goes on.
+process.stderr.on('error', () => undefined);
 // After these nothing can be relied on: say it and end, so that a supervisor starts afresh.
 for (const event of ['uncaughtException', 'unhandledRejection'] as const) {
   process.on(event, (thrown: unknown) => {
@@ -44,8 +55,8 @@ for (const event of ['uncaughtException', 'unhandledRejection'] as const) {
 try {
   await createProgram().parseAsync();
 } catch (thrown) {
-  // commander has said what is wrong, or has printed the help or the version that was asked for.
-  if (thrown instanceof CommanderError) {
-    process.exitCode = thrown.exitCode === 0 ? EXIT_CODES.ok.code : EXIT_CODES.usage.code;
-  } else fail(thrown);
+  if (thrown instanceof CommanderError) commandLineFailed(thrown);
+  else fail(thrown);
+  // What was interrupted may still be at work.
+  if (thrown instanceof RockhourError && thrown.code === 'INTERRUPTED') process.exit();
 }

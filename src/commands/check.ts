@@ -29,6 +29,12 @@ export function register(program: Command): void {
 }
 
 function answer(options: CheckOptions): string {
+  const asked = [options.config, options.schema, options.explain].filter(
+    (one) => one !== undefined,
+  );
+  if (asked.length > 1) {
+    throw new RockhourError('USAGE', '--config, --schema and --explain do not go together');
+  }
   if (options.schema) return JSON.stringify(siteJsonSchema(), null, 2);
   if (options.explain) return referenceText().trimEnd();
   const { config, json } = options;

@@ -5,6 +5,7 @@ import type { SiteConfig } from '../config/site.js';
 import { type DemoCheck, type DemoOptions, demoSite, runDemo, runDemoCheck } from '../daemon.js';
 import { RockhourError } from '../errors.js';
 import { createLog } from '../log.js';
+import { Interrupt, interrupted } from './interrupt.js';
 import { startProgress } from './progress.js';
 import { askedToStop, logLevel, packageVersion, readyLine } from './run.js';
 import { table } from './table.js';
@@ -30,7 +31,7 @@ function numberIn(name: string, text: string, least: number, most: number): numb
   if (text.trim() !== '' && value >= least && value <= most) return value;
   throw new RockhourError(
     'USAGE',
-    `${name} is ${text}, expected a number from ${least} to ${most}`,
+    `${name} is ${JSON.stringify(text)}; expected a number from ${least} to ${most}`,
   );
 }
 
@@ -38,10 +39,13 @@ function port(name: string, text: string | undefined): number | null {
   if (text === undefined) return null;
   const value = numberIn(name, text, 0, 65535);
   if (Number.isInteger(value)) return value;
-  throw new RockhourError('USAGE', `${name} is ${text}, expected a whole number`);
+  throw new RockhourError('USAGE', `${name} is ${JSON.stringify(text)}; expected a whole number`);
 }
 
 async function demo(options: DemoCommandOptions): Promise<void> {
+  if (options.json && options.checkHours === undefined) {
+    throw new RockhourError('USAGE', '--json goes with --check-hours only');
+  }
   const speed = numberIn('--speed', options.speed, 1, 2000);
   const { site, remove } = await demoSite(loadSite(options.config), {
     http_port: port('--http-port', options.httpPort),
@@ -95,9 +99,21 @@ async function check(
   const progress = startProgress('simulated hours', hours);
   const quiet = { ...site, mqtt: { ...site.mqtt, embedded_port: 0 } };
   let checks: DemoCheck[];
+  let reached = 0;
+  const interrupt = new Interrupt();
+  interrupt.start();
   try {
-    checks = await runDemoCheck(quiet, common, hours, (done) => progress.update(done));
+    const run = runDemoCheck(quiet, common, hours, (done) => {
+      reached = done;
+      progress.update(done);
+    });
+    const ended = await Promise.race([run, interrupt.asked]);
+    if (typeof ended === 'string') {
+      throw interrupted(ended, `after ${reached.toFixed(1)} of ${hours} simulated hours`);
+    }
+    checks = ended;
   } finally {
+    interrupt.stop();
     progress.stop();
   }
   for (const one of checks) {

@@ -23,7 +23,10 @@ export function packageVersion(): string {
 export function logLevel(text: string): LogLevel {
   const level = LOG_LEVELS.find((one) => one === text);
   if (level) return level;
-  throw new RockhourError('USAGE', `--log-level is ${text}, expected ${LOG_LEVELS.join(', ')}`);
+  throw new RockhourError(
+    'USAGE',
+    `--log-level is ${JSON.stringify(text)}; expected one of ${LOG_LEVELS.join(', ')}`,
+  );
 }
 
 /**

@@ -4,6 +4,7 @@ import { RecordingReader } from '../adapters/recording/reader.js';
 import type { UnitDefinition } from '../core/definitions.js';
 import type { Scan } from '../core/scan/scan.js';
 import { withoutControls } from '../errors.js';
+import { Interrupt } from './interrupt.js';
 import { startProgress } from './progress.js';
 
 /** Longest time without a turn of the event loop [ms]. */
@@ -20,6 +21,7 @@ export type Visit = (scan: Scan) => void | boolean | Promise<void>;
 /**
  * Hands every scan of a recording to `visit`, with a progress bar, until the end or until `visit`
  * gives false; then the reader, whose counts say what the recording held.
+ * @throws RockhourError RECORDING_*, INTERRUPTED
  */
 export async function walkRecording(
   path: string,
@@ -29,13 +31,18 @@ export async function walkRecording(
 ): Promise<RecordingReader> {
   const reader = new RecordingReader(path, unit, { otherChannels });
   const progress = startProgress(unit.id, size(path));
+  const interrupt = new Interrupt();
+  interrupt.start();
   try {
     let done = 0;
+    let visited = 0;
     let turned_ms = performance.now();
     for await (const scans of reader.batches()) {
       const step = (reader.counts.bytes - done) / scans.length;
       for (const scan of scans) {
+        interrupt.check(() => `after ${visited} rows of ${path}`);
         if ((await visit(scan)) === false) return reader;
+        visited++;
         done += step;
         progress.update(done);
         if (performance.now() - turned_ms < TURN_MS) continue;
@@ -45,6 +52,7 @@ export async function walkRecording(
       }
     }
   } finally {
+    interrupt.stop();
     progress.stop();
   }
   return reader;
@@ -54,18 +62,26 @@ export async function walkRecording(
 export function tellCounts(reader: RecordingReader): string[] {
   const { counts } = reader;
   const lines: string[] = [];
-  const tell = (count: number, what: string) => {
-    if (count > 0) lines.push(`${count} ${what}`);
+  const tell = (count: number, one: string, many: string) => {
+    if (count > 0) lines.push(`${count} ${count === 1 ? one : many}`);
   };
-  tell(counts.repeated, 'rows replaced by a later one of the same time');
+  if (counts.rows === 0) lines.push('the recording has a header but no rows');
   tell(
-    counts.text,
-    `fields with text instead of a number, taken as missing (${counts.textExamples.join('; ')})`,
+    counts.repeated,
+    'row replaced by a later one of the same time',
+    'rows replaced by a later one of the same time',
   );
-  tell(counts.shortRows, 'rows with fewer fields than the header, the rest taken as missing');
-  tell(counts.longRows, 'rows with more fields than the header, the surplus ignored');
-  tell(counts.blankLines, 'blank lines skipped');
-  tell(counts.held, 'values carried on for channels that report by exception');
+  const examples = counts.textExamples.join('; ');
+  const text = `with text instead of a number, taken as missing (${examples})`;
+  tell(counts.text, `field ${text}`, `fields ${text}`);
+  if (/"[+-]?\d+,\d+"/.test(examples)) lines.push('numbers need a decimal point, not a comma');
+  const short = 'with fewer fields than the header, the rest taken as missing';
+  tell(counts.shortRows, `row ${short}`, `rows ${short}`);
+  const long = 'with more fields than the header, the surplus ignored';
+  tell(counts.longRows, `row ${long}`, `rows ${long}`);
+  tell(counts.blankLines, 'blank line skipped', 'blank lines skipped');
+  const held = 'carried on for channels that report by exception';
+  tell(counts.held, `value ${held}`, `values ${held}`);
   if (counts.unknownColumns.length > 0) {
     lines.push(`columns that are no channel, ignored: ${counts.unknownColumns.join(', ')}`);
   }

@@ -77,7 +77,7 @@ describe('rockhour replay', () => {
     const second = file('second.jsonl');
     const args = ['replay', '--config', CONFIG, '--recording', other, '--out', second];
     const { stderr } = await rockhour([...args, '--hours-at', '1']);
-    expect(stderr).toContain('1 rows replaced by a later one of the same time');
+    expect(stderr).toContain('1 row replaced by a later one of the same time');
     expect(readFileSync(second, 'utf8')).toBe(readFileSync(first, 'utf8'));
   });
 
@@ -146,7 +146,7 @@ describe('rockhour replay of bad input', () => {
         .replace(/(06:00:30[^,]*),[^,]*/, '$1,Bad'),
     );
     const { code, stderr } = await rockhour(['replay', ...withRecording(path)]);
-    expect(stderr).toContain('1 fields with text instead of a number');
+    expect(stderr).toContain('1 field with text instead of a number');
     expect(stderr).toContain('row 3');
     expect(stderr.match(/remark/g)).toHaveLength(1);
     expect(code).toBe(0);

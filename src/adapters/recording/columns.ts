@@ -42,6 +42,13 @@ function missingChannels(unit: RecordedUnit, present: ReadonlySet<string>): stri
   return [...needed].filter((id) => !present.has(id));
 }
 
+/** Names with commas, not more than a person reads. */
+function listed(names: readonly string[]): string {
+  const most = 12;
+  const more = names.length - most;
+  return more > 1 ? `${names.slice(0, most).join(', ')} and ${more} more` : names.join(', ');
+}
+
 /**
  * Reads a header against a unit.
  * @param header names of the columns, in order
@@ -78,7 +85,7 @@ export function readHeader(
   if (missing.length > 0) {
     throw new RockhourError(
       'RECORDING_COLUMN_MISSING',
-      `${path} has no column ${missing.join(', ')}, which unit ${unit.id} needs`,
+      `${path} has no column ${listed(missing)}, which unit ${unit.id} needs`,
     );
   }
   const known = (name: string) => name === 'time' || index.has(name) || others.has(name);
