@@ -25,6 +25,8 @@ import { followCorrection } from './wallZone.js';
 
 /** Most readings outside the gate: a common cause, not the sensors. */
 const MISS_SHARE = 0.4;
+/** So many of them at least, or all of the two that a small store has. */
+const MISS_LEAST = 3;
 const MISS_SCANS = 3;
 
 /** Judges and takes in the readings of one scan, after the prediction. */
@@ -42,7 +44,8 @@ export function updateStore(
   rejectFaultyGroups(model, state, believed, time_ms);
   const sound = believed.filter((c) => memoryOf(state, c).verdict === null);
   const outside = sound.filter((c) => Math.abs(innovation(c)) > GATE_SIGMAS * c.sigma_K);
-  if (outside.length >= 3 && outside.length > MISS_SHARE * sound.length) {
+  const least = Math.max(2, Math.min(MISS_LEAST, sound.length));
+  if (outside.length >= least && outside.length > MISS_SHARE * sound.length) {
     // Most readings miss: the estimate is in doubt, not the sensors, so the verdicts stay.
     state.missed++;
     if (state.missed < MISS_SCANS) return 'missed';
