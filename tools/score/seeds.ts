@@ -1,5 +1,5 @@
 import { existsSync, mkdirSync, readFileSync, writeFileSync } from 'node:fs';
-import { join } from 'node:path';
+import { dirname, join } from 'node:path';
 import { folder } from './folder.js';
 
 /** Seeds 1 to 24 are for tuning; scores are taken with those from here on. */
@@ -14,21 +14,21 @@ interface Memory {
   readonly pending: readonly number[];
 }
 
-const file = join(folder, 'seeds.json');
+const FILE = join(folder, 'seeds.json');
 
-function remember(memory: Memory): void {
-  mkdirSync(folder, { recursive: true });
+function remember(memory: Memory, file: string): void {
+  mkdirSync(dirname(file), { recursive: true });
   writeFileSync(file, `${JSON.stringify(memory)}\n`);
 }
 
-function recall(): Memory {
+function recall(file: string): Memory {
   if (!existsSync(file)) return { used: [], pending: [] };
   return JSON.parse(readFileSync(file, 'utf8')) as Memory;
 }
 
 /** Seeds that no run has used, drawn from the clock and remembered, or those of a run broken off. */
-export function freshSeeds(count: number, now_ms: number): number[] {
-  const { used, pending } = recall();
+export function freshSeeds(count: number, now_ms: number, file = FILE): number[] {
+  const { used, pending } = recall(file);
   if (pending.length === count) return [...pending];
   const known = new Set(used);
   const fresh: number[] = [];
@@ -39,11 +39,11 @@ export function freshSeeds(count: number, now_ms: number): number[] {
     known.add(seed);
     fresh.push(seed);
   }
-  remember({ used: [...known], pending: fresh });
+  remember({ used: [...known], pending: fresh }, file);
   return fresh;
 }
 
 /** The run has ended: the next one draws anew. */
-export function seedsDone(): void {
-  remember({ ...recall(), pending: [] });
+export function seedsDone(file = FILE): void {
+  remember({ ...recall(file), pending: [] }, file);
 }

@@ -1,0 +1,48 @@
+import { spawnSync } from 'node:child_process';
+import { describe, expect, it } from 'vitest';
+import { ALL_SCENARIOS, QUICK, SCENARIOS } from '../../tools/score/scenarios.js';
+import { root } from '../house/imports.js';
+
+function score(...args: string[]) {
+  const program = ['--import', 'tsx', 'tools/score.ts', ...args];
+  return spawnSync(process.execPath, program, { cwd: root, encoding: 'utf8' });
+}
+
+describe('npm run score', () => {
+  it.each([
+    [['--seeds', '0'], /--seeds must be a whole number of at least 1, got "0"/],
+    [['--fresh', 'many'], /--fresh must be a whole number/],
+    [['--only', 'nominal,gab'], /--only must be of nominal, .*; got gab/],
+    [['--rows', 'all'], /--rows must be of all-independent, .*; got all/],
+  ])('refuses %s in one line that says what it takes', (args, words) => {
+    const { status, stderr, stdout } = score(...args);
+    expect(stderr).toMatch(words);
+    expect(stderr.trim().split('\n')).toHaveLength(1);
+    expect(stdout).toBe('');
+    expect(status).toBe(2);
+  });
+});
+
+describe('the scenarios', () => {
+  it('have names of their own, rows of their own and truths that differ where their names do', () => {
+    const ids = ALL_SCENARIOS.map((s) => s.id);
+    expect(new Set(ids).size).toBe(ids.length);
+    for (const { id, rows } of ALL_SCENARIOS) {
+      expect(new Set(rows.map((r) => r.id)).size, id).toBe(rows.length);
+    }
+    const plans = new Map(ALL_SCENARIOS.map(({ truth }) => [truth.id, truth]));
+    for (const { truth } of ALL_SCENARIOS) {
+      const { machine, hours_every_min } = plans.get(truth.id)!;
+      expect([truth.machine, truth.hours_every_min]).toEqual([machine, hours_every_min]);
+    }
+  });
+
+  it('cover what is asked for', () => {
+    const asked = ['nominal', 'week', 'standing', 'faults', 'meter-step', 'gap'];
+    const levels = ['channel-5', 'channel-10', 'channel-22'];
+    const transfers = ['transfer-70', 'transfer-50', 'transfer-16'];
+    const ids = SCENARIOS.map((s) => s.id);
+    expect(ids).toEqual(expect.arrayContaining([...asked, ...levels, ...transfers]));
+    expect(QUICK.length).toBeGreaterThan(3);
+  });
+});
