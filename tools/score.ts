@@ -117,11 +117,14 @@ for (const { job, error } of failures) {
   console.error(`${job.scenario} with seed ${job.seed} failed: ${error}`);
 }
 
-const blocks = blocksOf(scenarios, (scenario, row) =>
-  all
-    .filter((run) => run.scenario.id === scenario)
-    .map(({ seed }) => resultOf(scenario, row, seed, hashes.result))
-    .filter((result) => result !== null),
+const blocks = blocksOf(
+  scenarios,
+  (scenario, row) =>
+    all
+      .filter((run) => run.scenario.id === scenario)
+      .map(({ seed }) => resultOf(scenario, row, seed, hashes.result))
+      .filter((result) => result !== null),
+  fresh,
 );
 process.stdout.write(tableText(blocks));
 const marked = blocks.flatMap((block) => block.figures.filter((f) => f.met !== null));

@@ -74,13 +74,14 @@ describe('the figures of a row', () => {
     syntheticSeries(240, (n) => ({ ...point(n), found_soc: 0.5 })),
     8,
   );
-  const figures = commonFigures(scenario, row, [result, perfect], { hours: 6 });
+  const figures = commonFigures(scenario, row, [result, perfect], { rated_h: 6, fresh: [8] });
   const named = (name: string) => figures.find((f) => f.name.trim() === name)!;
 
   it('pool the runs', () => {
     expect(pooled([result, perfect]).soc!.n).toBe(4 * 180);
     expect(named('state of charge, rms').value).toBeCloseTo(RMS / Math.SQRT2, 9);
     expect(named('sensors wrongly named').value).toBe(1);
+    expect(named('state of charge, rms').note).toBe('fresh seeds alone 0.000');
   });
 
   it('are marked against the goals', () => {
@@ -104,7 +105,7 @@ describe('the figures of a row', () => {
 
   it('have none of the goals with three thermocouples', () => {
     const three = scenario.rows.find((r) => r.id === 'three-independent')!;
-    const marked = commonFigures(scenario, three, [result], { hours: 6 }).filter(
+    const marked = commonFigures(scenario, three, [result], { rated_h: 6, fresh: [8] }).filter(
       (f) => f.met !== null,
     );
     expect(marked.map((f) => f.name)).toEqual(['sensors wrongly named']);

@@ -11,6 +11,7 @@ const ERROR_WORDS = { independent: 'independent offsets', class: 'errors of the 
 export function blocksOf(
   scenarios: readonly Scenario[],
   resultsOf: (scenario: string, row: string) => readonly RowResult[],
+  fresh: readonly number[],
 ): Block[] {
   const blocks: Block[] = [];
   let broken = 0;
@@ -26,7 +27,7 @@ export function blocksOf(
         days += results.reduce((sum, r) => sum + r.scored_h, 0) / 24;
       }
       const words = row.words === undefined ? scenario.words : `${scenario.words}: ${row.words}`;
-      const rated = { hours: unitWith(row.set, row.errors).rated_hours };
+      const rated_h = unitWith(row.set, row.errors).rated_hours;
       blocks.push({
         scenario: scenario.id,
         row: row.id,
@@ -34,7 +35,7 @@ export function blocksOf(
         seeds: results.length,
         figures: [
           ...scenario.figures(row, results),
-          ...commonFigures(scenario, row, results, rated),
+          ...commonFigures(scenario, row, results, { rated_h, fresh }),
         ],
       });
     }

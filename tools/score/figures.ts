@@ -25,11 +25,12 @@ export function commonFigures(
   scenario: Scenario,
   row: RowPlan,
   results: readonly RowResult[],
-  rated: { readonly hours: number },
+  about: { readonly rated_h: number; readonly fresh: readonly number[] },
 ): Figure[] {
   const sums = pooled(results);
   const goals = goalsOf(scenario, row);
-  const out = [...chargeFigures(scenario, row, sums)];
+  const fresh = pooled(results.filter((r) => about.fresh.includes(r.seed)));
+  const out = [...chargeFigures(scenario, row, sums, fresh)];
   const ratios: [name: string, words: string, goal: Goal | null][] = [
     ['soc', 'state of charge', goals && RATIO],
   ];
@@ -50,7 +51,7 @@ export function commonFigures(
     const sum = sums[`${name}/sigma`];
     out.push(figure(`truth over sigma, ${words}, rms`, rmsOf(sum), '', goal, sum?.at));
   }
-  if (scenario.hours) out.push(...hoursFigures(scenario, row, results, sums, rated.hours));
+  if (scenario.hours) out.push(...hoursFigures(scenario, row, results, sums, about.rated_h));
   if (scenario.healthy) {
     const named = results.reduce((sum, r) => sum + r.rejections.length, 0);
     const days = results.reduce((sum, r) => sum + r.scored_h, 0) / 24;
@@ -63,12 +64,21 @@ export function commonFigures(
 
 const ZERO: Goal = { most: 0, each: true };
 
-function chargeFigures(scenario: Scenario, row: RowPlan, sums: Record<string, Sum>): Figure[] {
+function chargeFigures(
+  scenario: Scenario,
+  row: RowPlan,
+  sums: Record<string, Sum>,
+  fresh: Record<string, Sum>,
+): Figure[] {
   const goals = goalsOf(scenario, row);
   const only = typeof scenario.goals === 'object' ? { most: scenario.goals.soc_rms } : null;
   const worstOf = (name: string, words: string, goal: Goal | null) => {
     const sum = sums[name];
     return figure(words, sum ? Math.abs(sum.worst) : null, '%', goal, sum?.at);
+  };
+  const note = (name: string) => {
+    const value = rmsOf(fresh[name]);
+    return value === null ? '' : `fresh seeds alone ${value.toFixed(3)}`;
   };
   const apart = row.errors === 'class' && scenario.goals === 'sensors';
   const own = apart
@@ -78,6 +88,7 @@ function chargeFigures(scenario: Scenario, row: RowPlan, sums: Record<string, Su
           rmsOf(sums[`soc ${store}`]),
           '%',
           goals && { most: goals.class[store] },
+          note(`soc ${store}`),
         ),
       )
     : [figure('state of charge, rms', rmsOf(sums.soc), '%', goals ? { most: goals.soc[0] } : only)];

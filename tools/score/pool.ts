@@ -22,6 +22,8 @@ export async function runJobs(
     }),
   );
   await Promise.all(workers);
+  // Only where both processes have ended before their time.
+  for (const job of waiting) failures.push({ job, error: 'not run: no process was left for it' });
   return failures;
 }
 
