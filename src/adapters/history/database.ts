@@ -1,4 +1,4 @@
-import { existsSync, mkdirSync } from 'node:fs';
+import { mkdirSync, statSync } from 'node:fs';
 import { dirname } from 'node:path';
 import SQLite from 'better-sqlite3';
 import { fileReasonOf, RockhourError } from '../../errors.js';
@@ -19,15 +19,19 @@ export type Migrations = readonly string[];
  * /proc, that of Node 20 tries for ever.
  */
 export function makeFolder(folder: string): void {
-  if (existsSync(folder)) return;
+  if (isFolder(folder)) return;
   const above = dirname(folder);
   if (above !== folder) makeFolder(above);
   try {
     mkdirSync(folder);
   } catch (thrown) {
     // Another process may have been faster.
-    if (!existsSync(folder)) throw thrown;
+    if (!isFolder(folder)) throw thrown;
   }
+}
+
+function isFolder(path: string): boolean {
+  return statSync(path, { throwIfNoEntry: false })?.isDirectory() ?? false;
 }
 
 /**
