@@ -91,7 +91,15 @@ function chargeFigures(
           note(`soc ${store}`),
         ),
       )
-    : [figure('state of charge, rms', rmsOf(sums.soc), '%', goals ? { most: goals.soc[0] } : only)];
+    : [
+        figure(
+          'state of charge, rms',
+          rmsOf(sums.soc),
+          '%',
+          goals ? { most: goals.soc[0] } : only,
+          note('soc'),
+        ),
+      ];
   return [
     ...own,
     worstOf(
