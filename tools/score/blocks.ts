@@ -44,7 +44,7 @@ export function blocksOf(
   const all = [figure('estimates that are not finite', broken, '', { most: 0, each: true })];
   if (days > 0) {
     const note = `in ${days.toFixed(0)} unit-days with sound thermocouples; 300 are asked for`;
-    all.push(figure('sensors wrongly named', named, '', { most: 0, each: true }, note));
+    all.push(figure('sensors wrongly named', named, '', { most: 0 }, note));
   }
   blocks.push({ scenario: 'all', row: 'all', title: 'all runs together', seeds: 0, figures: all });
   return blocks;
