@@ -9,6 +9,7 @@ import { type StoreEnergy, storeEnergy } from './track/storeEnergy.js';
 import { storeFronts } from './track/storeEstimate.js';
 import { type StoreState, type StoreStep, stepStore } from './track/storeTracker.js';
 import { type StoreViews, stepViews } from './track/storeViews.js';
+import { followOrigin } from './track/unseenFlow.js';
 import type { UnitModel } from './unitModel.js';
 import type { UnitState } from './unitState.js';
 
@@ -62,6 +63,7 @@ export function takeIn(model: UnitModel, state: UnitState, raw: Scan): Taken {
       scan.time_ms,
       state.unknownTravel_m[s] as number,
     );
+    followOrigin(store, storeState, step === 'reacquired');
     const energy = storeEnergy(store, storeState);
     const fronts = storeFronts(store, storeState, energy);
     const unknown = state.unknownTravel_m[s] as number;

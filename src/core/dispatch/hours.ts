@@ -8,6 +8,7 @@ import { cellCentres } from '../track/storeEstimate.js';
 import type { StoreModel, StoreState } from '../track/storeTracker.js';
 import { streamsOf } from '../track/streams.js';
 import type { TubeModel, TubeState } from '../track/tube.js';
+import { unseenSigma } from '../track/unseenFlow.js';
 import { earliestQuantiles } from './earliestQuantiles.js';
 import { type RolloutInput, type RolloutStore, RULES, rollOut } from './rollout.js';
 
@@ -73,6 +74,7 @@ export function computeHours(input: HoursInput, power_W: number): DispatchAnswer
     );
     const flow = slope(roller.roll({ store: s, flow: PROBE_LOG }).times_s, PROBE_LOG);
     const transfer = slope(roller.roll({ store: s, transfer: PROBE_LOG }).times_s, PROBE_LOG);
+    addUnseen(input, s, live, power_W, covariance);
     addStore(
       model,
       input.states[s] as StoreState,
@@ -89,6 +91,29 @@ export function computeHours(input: HoursInput, power_W: number): DispatchAnswer
   );
   const mean = live.map((r) => base.times_s[r] as number);
   return answer(power_W, earliestQuantiles(mean, covariance), base.ends_by);
+}
+
+/**
+ * What flow that no string sees may do to a store's own rule: its sigma in state of charge, times
+ * the time that a full store lasts at this power.
+ */
+function addUnseen(
+  input: HoursInput,
+  s: number,
+  live: readonly number[],
+  power_W: number,
+  covariance: readonly Float64Array[],
+): void {
+  const model = input.models[s] as StoreModel;
+  const own = model.store.kind === 'hot' ? 'hot_outlet' : 'cold_outlet';
+  const lasts_s = (input.unit.rated_hours * 3600 * input.unit.rated_power_W) / power_W;
+  const variance = (unseenSigma(model, input.states[s] as StoreState) * lasts_s) ** 2;
+  const touched = live.map((r) => RULES[r] === own || RULES[r] === 'flow');
+  for (let a = 0; a < live.length; a++) {
+    for (let b = 0; b < live.length; b++) {
+      if (touched[a] && touched[b]) (covariance[a] as Float64Array)[b]! += variance;
+    }
+  }
 }
 
 /** Only the central figure [s of discharge], for a state of charge between full answers. */

@@ -2,6 +2,7 @@ import { enthalpyAt } from '../bed/tables.js';
 import type { StoreModel, StoreState } from './storeTracker.js';
 import { streamsOf } from './streams.js';
 import type { TubeModel, TubeState } from './tube.js';
+import { unseenSigma } from './unseenFlow.js';
 
 const J_PER_MWH = 3.6e9;
 
@@ -12,6 +13,8 @@ export interface StoreEnergy {
   readonly stored_MWh_th: number;
   readonly stored_sigma_MWh_th: number;
   readonly capacity_MWh_th: number;
+  /** The part of soc_sigma from flow that no string sees [-]. */
+  readonly unseen: number;
   /**
    * Variance of the area-weighted sum over that of fully correlated tubes: how much of the tubes'
    * errors is shared [-].
@@ -67,7 +70,8 @@ export function storeEnergy(model: StoreModel, state: StoreState): StoreEnergy {
     squares += w * w * variance;
   });
   const variance = independent + common * common;
-  const soc_sigma = Math.sqrt(variance);
+  const unseen = unseenSigma(model, state);
+  const soc_sigma = Math.hypot(Math.sqrt(variance), unseen);
   const capacitySigma = model.tubes[0]?.estimator.heat_capacity_sigma ?? 0;
   return {
     soc,
@@ -75,6 +79,7 @@ export function storeEnergy(model: StoreModel, state: StoreState): StoreEnergy {
     stored_MWh_th: soc * capacity,
     stored_sigma_MWh_th: capacity * Math.hypot(soc_sigma, soc * capacitySigma),
     capacity_MWh_th: capacity,
+    unseen,
     correlation: aligned > 0 ? Math.min(1, variance / (aligned * aligned)) : 1,
     shared_over_independent: squares > 0 ? Math.max(1, variance / squares) : 1,
   };

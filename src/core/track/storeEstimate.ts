@@ -9,13 +9,13 @@ import type {
   StringEstimate,
   TubeProfile,
 } from '../estimate.js';
-import { energyPosition } from './energyPosition.js';
 import { type Covariance, frontSigma } from './frontSigma.js';
 import { type FoundFront, findFronts } from './fronts.js';
-import { referenceEnthalpies, type StoreEnergy } from './storeEnergy.js';
+import type { StoreEnergy } from './storeEnergy.js';
 import type { StoreModel, StoreState } from './storeTracker.js';
 import { streamsOf } from './streams.js';
 import { type TubeModel, type TubeState, tubeTemperatures } from './tube.js';
+import { storeEnergyPosition } from './unseenFlow.js';
 
 /** Cell centres of a store's tubes [m]. */
 export function cellCentres(model: StoreModel): Float64Array {
@@ -48,16 +48,11 @@ export function storeFronts(
   const mean = meanTemperatures(model, state);
   const found = findFronts(cellCentres(model), mean, store.reference_hot_K, store.reference_cold_K);
   const covariance = meanCovariance(model, state, energy.correlation);
-  return { fronts: found.fronts.map((f) => describe(f, covariance)), reason: found.reason };
-}
-
-/** Energy-equivalent position of the store: the area-weighted mean of its tubes' [m]. */
-export function storeEnergyPosition(model: StoreModel, state: StoreState): number {
-  const { charged, discharged } = referenceEnthalpies(model);
-  return streamsOf(model, state).reduce((sum, { share, enthalpy }) => {
-    const dx = model.store.bed.length_m / enthalpy.length;
-    return sum + share * energyPosition(enthalpy, dx, charged, discharged);
-  }, 0);
+  const unseen_m = energy.unseen * store.bed.length_m;
+  return {
+    fronts: found.fronts.map((f) => describe(f, covariance, unseen_m)),
+    reason: found.reason,
+  };
 }
 
 /** Gas that leaves the store, mixed by flow [K]; NaN while standing. */
@@ -117,11 +112,11 @@ function meanCovariance(model: StoreModel, state: StoreState, correlation: numbe
   };
 }
 
-function describe(front: FoundFront, covariance: Covariance): FrontEstimate {
+function describe(front: FoundFront, covariance: Covariance, unseen_m: number): FrontEstimate {
   const sigma = frontSigma(front, covariance);
   return {
     position_m: front.position_m,
-    position_sigma_m: sigma.position_sigma_m,
+    position_sigma_m: Math.hypot(sigma.position_sigma_m, unseen_m),
     width_m: front.width_m,
     width_sigma_m: sigma.width_sigma_m,
   };
@@ -135,7 +130,7 @@ export function tubeFronts(model: StoreModel, tube: TubeModel, state: TubeState)
   const x = cellCentres(model);
   const { fronts } = findFronts(x, own, store.reference_hot_K, store.reference_cold_K);
   const covariance: Covariance = (i, j) => state.covariance[i * size + j] as number;
-  return fronts.map((front) => describe(front, covariance));
+  return fronts.map((front) => describe(front, covariance, 0));
 }
 
 function describeString(model: StoreModel, tube: TubeModel, state: TubeState): StringEstimate {

@@ -41,6 +41,8 @@ export interface StoreState {
   /** The zone at the wall, null where the definition has no wall steel. */
   readonly wall: WallState | null;
   started: boolean;
+  /** Energy-equivalent position where the fronts were last known to be even across the bed [m]. */
+  origin_m: number;
   /** Scans in a row in which most readings stood outside the gate. */
   missed: number;
   /** Scans since the profile was last re-acquired, capped. */
@@ -79,6 +81,7 @@ export function startStore(model: StoreModel): StoreState {
     tubes,
     sensors: model.tubes.map((tube) => tube.string.thermocouples.map(freshSensor)),
     started: false,
+    origin_m: 0,
     missed: 0,
     settled: 0,
     used: 0,

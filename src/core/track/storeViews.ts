@@ -16,9 +16,10 @@ import {
   stepFrontView,
 } from './frontView.js';
 import { frontSpeed, frontSpread } from './frontViewTravel.js';
-import { meanFactor, meanTemperatures, storeEnergyPosition, tubeFronts } from './storeEstimate.js';
+import { meanFactor, meanTemperatures, tubeFronts } from './storeEstimate.js';
 import type { StoreModel, StoreState } from './storeTracker.js';
 import type { TubeDrive, TubeModel, TubeState } from './tube.js';
+import { storeEnergyPosition } from './unseenFlow.js';
 
 /** Maintenance's view of a store: the front view of each string, and the healthy twin. Plain. */
 export interface StoreViews {
