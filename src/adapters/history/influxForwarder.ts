@@ -97,7 +97,7 @@ export class InfluxForwarder {
       this.schedule(more ? 0 : IDLE_MS);
     } catch (thrown) {
       if (this.influx !== influx) return;
-      this.failed(reasonOf(thrown));
+      this.failed(complaintOf(thrown));
       this.schedule(this.retry_ms);
       this.retry_ms = Math.min(RETRY_MOST_MS, this.retry_ms * 2);
     }
@@ -143,7 +143,7 @@ export class InfluxForwarder {
         return this.write(influx, points, false);
       }
       if (status !== 400) throw thrown;
-      return this.halve(influx, points, reasonOf(thrown));
+      return this.halve(influx, points, complaintOf(thrown));
     }
   }
 
@@ -204,6 +204,17 @@ function makeClient(config: InfluxConfig): InfluxDB {
     ...(config.password === null ? {} : { password: config.password }),
     pool,
   });
+}
+
+/** What InfluxDB said, in one line: its client puts a status line before the JSON of the answer. */
+function complaintOf(thrown: unknown): string {
+  const reason = reasonOf(thrown).trim().replace(/\s+/g, ' ');
+  const status = statusOf(thrown);
+  if (status === null) return reason;
+  const words = /\{"error":"(.*)"\}$/.exec(reason)?.[1] ?? reason;
+  return status === 401 || status === 403
+    ? `it refuses the login of influx.username and its password (${status}: ${words})`
+    : `it answers ${status}: ${words}`;
 }
 
 /** The HTTP status in an error of the client, which is circular: nothing else of it is touched. */
