@@ -43,6 +43,10 @@ await packageStep('tests', 'vitest/vitest.mjs', ['run', ...reporters, ...process
   // Tests of the commands run what was just built.
   ROCKHOUR_TEST_BUILT: '1',
 });
+if (process.argv.length === 2) {
+  const score = ['tools/score.ts', '--quick', '--brief'];
+  await packageStep('quick score against the finer plant', 'tsx/dist/cli.mjs', score);
+}
 
 /** Counts of Vitest; a file that did not even load is a failure of its own. */
 function counts() {
