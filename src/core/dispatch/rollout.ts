@@ -64,7 +64,9 @@ const FOLLOW = 0.3;
  *
  * The outlet-temperature rules wait until the plenum is swept, 10 minutes at most; where they are
  * still broken then, the discharge has not begun: 0 h. Each rule's time is interpolated within its
- * step, so the result is smooth in the state.
+ * step, so the result is smooth in the state. What leaves a bed is known as the mean of a step, so
+ * it counts for that step's middle, later by the lag of the plenum (see `excessLag`); the flow of a
+ * step is that of its own middle, by a straight line through the last two.
  */
 export function rollOut(
   input: RolloutInput,
@@ -75,6 +77,7 @@ export function rollOut(
   const beds = input.stores.map((s) => s.tubes.map((t) => Float64Array.from(t.enthalpy)));
   const times = new Float64Array(RULES.length).fill(Number.POSITIVE_INFINITY);
   const before = new Float64Array(RULES.length).fill(Number.NaN);
+  const beforeAt = new Float64Array(RULES.length);
   const plenum = input.stores.map((s, i) =>
     Number.isFinite(s.plenum_K) ? s.plenum_K : mixedEnd(s, beds[i] as Float64Array[]),
   );
@@ -83,6 +86,8 @@ export function rollOut(
   let swept = false;
   let first = Number.POSITIVE_INFINITY;
   const sweptMass = input.stores.map(() => 0);
+  const lags = input.stores.map(() => 0);
+  let flowBefore = Number.NaN;
   for (let t = 0; t <= input.most_s; t += input.step_s) {
     const outlets = {
       hot_K: plenum[hotIndex] ?? Number.NaN,
@@ -105,21 +110,30 @@ export function rollOut(
       point.specificWork_J_kg,
     ];
     if (!swept && (t >= SWEEP_MOST_S || isSwept(input, plenum, sweptMass, t))) swept = true;
+    const mean = lags.reduce((sum, lag) => sum + lag, 0) / lags.length;
     margins.forEach((margin, r) => {
       if (times[r] !== Number.POSITIVE_INFINITY || Number.isNaN(margin)) return;
       if (r <= 1 && !swept) return;
+      const at = t - (lags[r === 0 ? hotIndex : r === 1 ? coldIndex : -1] ?? mean);
       if (margin > 0) {
         before[r] = margin;
+        beforeAt[r] = at;
         return;
       }
       const last = before[r] as number;
       // Broken at its very first test: there never was a discharge.
-      times[r] = Number.isNaN(last) ? 0 : t - (input.step_s * margin) / (margin - last);
+      times[r] = Number.isNaN(last)
+        ? 0
+        : at - ((at - (beforeAt[r] as number)) * margin) / (margin - last);
       first = Math.min(first, times[r] as number);
     });
     if (!Number.isFinite(flow) || t > first * (1 + FOLLOW) || (first === 0 && swept)) break;
     // Past its first broken rule the flow may run away; the rest only serves the other rules' times.
-    const used = Math.min(flow, 2 * limits.discharge.flow_max_kg_s);
+    const ahead = flow + (flow - flowBefore) * (0.5 + mean / input.step_s);
+    const middle = ahead > 0 ? ahead : flow;
+    const used = Math.min(middle, 2 * limits.discharge.flow_max_kg_s);
+    // While the lids are swept the flow says nothing of what follows.
+    if (swept) flowBefore = flow;
     input.stores.forEach((store, i) => {
       const inlet =
         store.store.kind === 'hot' ? point.inlets.hot_K : (point.inlets.cold_K as number);
@@ -131,6 +145,7 @@ export function rollOut(
         inlet,
         works[i] ?? [],
       );
+      lags[i] = excessLag(store, plenum[i] as number, out, used, input.step_s);
       plenum[i] = throughPlenum(store, plenum[i] as number, out, used, input.step_s);
       sweptMass[i] = (sweptMass[i] as number) + used * input.step_s;
     });
@@ -191,7 +206,7 @@ function mixedEnd(store: RolloutStore, beds: readonly Float64Array[]): number {
   return sum;
 }
 
-/** Well-mixed node of gas and steel: T' = out + (T - out) exp(-m cp dt/(C + rho V cp)). */
+/** Well-mixed node of gas and steel: T' = out + (T - out) exp(-dt/tau), tau = (C + rho V cp)/(m cp). */
 function throughPlenum(
   store: RolloutStore,
   plenum_K: number,
@@ -199,13 +214,37 @@ function throughPlenum(
   flow_kg_s: number,
   dt_s: number,
 ): number {
+  const tau = plenumTime(store, plenum_K, out_K, flow_kg_s);
+  return tau <= 0 ? out_K : out_K + (plenum_K - out_K) * Math.exp(-dt_s / tau);
+}
+
+function plenumTime(
+  store: RolloutStore,
+  plenum_K: number,
+  out_K: number,
+  flow_kg_s: number,
+): number {
   const { bed } = store.store;
   const cp = bed.fluid.heatCapacity(out_K);
   const gas =
     bed.end_volume_m3.charge_inlet * bed.fluid.density_kg_m3(plenum_K, bed.pressure_Pa) * cp;
-  const capacity = bed.end_capacity_J_K.charge_inlet + gas;
-  if (capacity <= 0) return out_K;
-  return out_K + (plenum_K - out_K) * Math.exp((-flow_kg_s * cp * dt_s) / capacity);
+  return (bed.end_capacity_J_K.charge_inlet + gas) / (flow_kg_s * cp);
+}
+
+/**
+ * How much later than it should [s] the plenum of `throughPlenum` shows a steadily changing outlet
+ * that is known by its means over steps: (dt/2) coth(dt/(2 tau)) - tau, which is dt/2 without a
+ * plenum and vanishes for one that is slow against the step.
+ */
+function excessLag(
+  store: RolloutStore,
+  plenum_K: number,
+  out_K: number,
+  flow_kg_s: number,
+  dt_s: number,
+): number {
+  const tau = plenumTime(store, plenum_K, out_K, flow_kg_s);
+  return dt_s / 2 / Math.tanh(dt_s / (2 * tau)) - tau;
 }
 
 /** True once the gas and, by its heat, the steel at the outlet ends have been replaced twice. */
