@@ -31,6 +31,7 @@ export interface RolloutInput {
   /** Learned factor on the machine's work per metered kilogram. */
   readonly workFactor: number;
   readonly ambient_K: number;
+  /** Step once the lids are swept [s]. */
   readonly step_s: number;
   readonly most_s: number;
 }
@@ -54,6 +55,8 @@ export interface RolloutResult {
 
 /** Gas that stood under a lid may take this long to be pushed out [s]. */
 const SWEEP_MOST_S = 600;
+/** Meanwhile a step is taken in so many parts: a lid changes within minutes, and the flow with it. */
+const SWEEP_PARTS = 5;
 /** After the first rule is broken the others are followed for this share of the time longer. */
 const FOLLOW = 0.3;
 
@@ -88,7 +91,8 @@ export function rollOut(
   const sweptMass = input.stores.map(() => 0);
   const lags = input.stores.map(() => 0);
   let flowBefore = Number.NaN;
-  for (let t = 0; t <= input.most_s; t += input.step_s) {
+  let step_s = input.step_s / SWEEP_PARTS;
+  for (let t = 0; t <= input.most_s; t += step_s) {
     const outlets = {
       hot_K: plenum[hotIndex] ?? Number.NaN,
       cold_K: coldIndex >= 0 ? (plenum[coldIndex] as number) : null,
@@ -109,7 +113,10 @@ export function rollOut(
       limits.pressure_drop_max_Pa === null ? Number.NaN : limits.pressure_drop_max_Pa - drop,
       point.specificWork_J_kg,
     ];
-    if (!swept && (t >= SWEEP_MOST_S || isSwept(input, plenum, sweptMass, t))) swept = true;
+    if (!swept && (t >= SWEEP_MOST_S || isSwept(input, plenum, sweptMass, t))) {
+      swept = true;
+    }
+    if (swept) step_s = input.step_s;
     const mean = lags.reduce((sum, lag) => sum + lag, 0) / lags.length;
     margins.forEach((margin, r) => {
       if (times[r] !== Number.POSITIVE_INFINITY || Number.isNaN(margin)) return;
@@ -129,7 +136,7 @@ export function rollOut(
     });
     if (!Number.isFinite(flow) || t > first * (1 + FOLLOW) || (first === 0 && swept)) break;
     // Past its first broken rule the flow may run away; the rest only serves the other rules' times.
-    const ahead = flow + (flow - flowBefore) * (0.5 + mean / input.step_s);
+    const ahead = flow + (flow - flowBefore) * (0.5 + mean / step_s);
     const middle = ahead > 0 ? ahead : flow;
     const used = Math.min(middle, 2 * limits.discharge.flow_max_kg_s);
     // While the lids are swept the flow says nothing of what follows.
@@ -143,11 +150,12 @@ export function rollOut(
         beds[i] as Float64Array[],
         used,
         inlet,
+        step_s,
         works[i] ?? [],
       );
-      lags[i] = excessLag(store, plenum[i] as number, out, used, input.step_s);
-      plenum[i] = throughPlenum(store, plenum[i] as number, out, used, input.step_s);
-      sweptMass[i] = (sweptMass[i] as number) + used * input.step_s;
+      lags[i] = excessLag(store, plenum[i] as number, out, used, step_s);
+      plenum[i] = throughPlenum(store, plenum[i] as number, out, used, step_s);
+      sweptMass[i] = (sweptMass[i] as number) + used * step_s;
     });
   }
   let end = Number.POSITIVE_INFINITY;
@@ -168,6 +176,7 @@ function stepStoreBeds(
   beds: readonly Float64Array[],
   flow_kg_s: number,
   inlet_K: number,
+  step_s: number,
   works: readonly BedWork[],
 ): number {
   let heat = 0;
@@ -179,7 +188,7 @@ function stepStoreBeds(
       massFlux_kg_m2s: -flux,
       inlet_K,
       ambient_K: input.ambient_K,
-      dt_s: input.step_s,
+      dt_s: step_s,
       heatTransferFactor: tube.heatTransferFactor,
       wallLoss_W_m3K: tube.wallLoss_W_m3K,
     };
