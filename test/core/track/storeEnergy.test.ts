@@ -9,6 +9,7 @@ import {
   startStore,
 } from '../../../src/core/track/storeTracker.js';
 import { setTubeTemperatures, type TubeState } from '../../../src/core/track/tube.js';
+import { storeEnergyPosition } from '../../../src/core/track/unseenFlow.js';
 import { mulberry } from '../../support/random.js';
 import { coldStore, hotStore, modelOf, stringOf } from './plants.js';
 
@@ -112,6 +113,8 @@ describe('the sigma of the energy', () => {
         covariance[i * tube.layout.size + i] = (sigma_K[k] as number) ** 2;
       }
     });
+    // Even across the bed just now: flow that no string sees adds nothing yet.
+    state.origin_m = storeEnergyPosition(model, state);
     return state;
   }
 
@@ -131,6 +134,17 @@ describe('the sigma of the energy', () => {
     // The slope by differences across a table's nodes: c_s changes by 1e-3 from segment to segment.
     expect(soc_sigma / (slope(HOT) * Math.sqrt(variance))).toBeCloseTo(1, 2);
     expect(shared_over_independent).toBe(1);
+  });
+
+  it('adds what flow that no string sees may have done since the fronts were even', () => {
+    const state = independent(HOT, same(0));
+    const length = HOT.store.bed.length_m;
+    state.origin_m -= 0.5 * length;
+    const near = storeEnergy(HOT, state).soc_sigma;
+    state.origin_m -= 0.5 * length;
+    // It grows with the way, and one string that stands for all samples worst.
+    expect(storeEnergy(HOT, state).soc_sigma / near).toBeCloseTo(2, 9);
+    expect(near).toBeGreaterThan(0);
   });
 
   it('adds what tubes share, such as the meter, as if one', () => {
