@@ -314,7 +314,7 @@ class RockhourDaemon implements Daemon {
     const { folder } = this.site.store;
     const future = this.counters.get('future');
     return [
-      brokerHealth(mqtt.name, mqtt.isConnected, mqtt.refused),
+      brokerHealth(mqtt.name, mqtt.isConnected, mqtt.trouble, mqtt.refused),
       storeHealth(folder, this.intake.stuck, pipeline.backlog, pipeline.trouble),
       ...(this.database ? [this.database.health] : []),
       ...[...this.runners.values()].map((runner) =>

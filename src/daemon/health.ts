@@ -7,9 +7,13 @@ import type { UnitRunner } from './unitRunner.js';
 export function brokerHealth(
   url: string,
   isConnected: boolean,
+  trouble: string | null,
   refused: string | null,
 ): HealthPart {
-  const detail = isConnected ? `connected to ${url}` : `no connection to ${url}; keeps trying`;
+  const why = trouble === null ? '' : ` (${trouble})`;
+  const detail = isConnected
+    ? `connected to ${url}`
+    : `no connection to ${url}${why}; keeps trying`;
   return {
     name: 'mqtt',
     ok: isConnected && refused === null,

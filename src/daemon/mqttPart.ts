@@ -26,6 +26,7 @@ export class MqttPart {
   private readonly link: MqttLink;
   private readonly broker: EmbeddedBroker | null;
   private refusal: string | null = null;
+  private lost: string | null = null;
 
   constructor(private readonly options: MqttPartOptions) {
     const { config, intake } = options;
@@ -44,12 +45,14 @@ export class MqttPart {
       will: Announcer.will(config.out_prefix),
       receive: (delivery) => intake.receive(delivery),
       up: () => this.up(),
-      down: (reason) =>
+      down: (reason) => {
+        this.lost = reason;
         // By kind and minute: two clients with one client id would push each other out for ever.
         options.notices.warn(
           'mqtt_down',
           `no connection to the MQTT broker ${this.name}: ${reason}; rockhour keeps trying`,
-        ),
+        );
+      },
       refused: (reason) => {
         this.refusal = reason;
         options.log.error(`the MQTT broker refused a subscription: ${reason}`);
@@ -70,6 +73,11 @@ export class MqttPart {
 
   get isConnected(): boolean {
     return this.link.connected;
+  }
+
+  /** Why there is no connection, null where there is one or the first is still awaited. */
+  get trouble(): string | null {
+    return this.isConnected ? null : this.lost;
   }
 
   /** Why the broker refused a subscription, null where it did not. */
