@@ -27,6 +27,11 @@ describe('the binomial interval', () => {
     expect(b.effective).toBeCloseTo(19, 9);
   });
 
+  it('counts each seed as one where nothing tells how alike its cases are', () => {
+    const none = groups(35, 20, () => 0);
+    expect(binomialInterval(0.1, none).effective).toBeCloseTo(35, 9);
+  });
+
   it('holds the true share in 95 of 100 repetitions, with cases that are alike within a seed', () => {
     const random = mulberry(5);
     const repetitions = 2000;

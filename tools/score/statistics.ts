@@ -11,7 +11,8 @@ const TWO_SIDED_95 = 1.959963984540054;
  *
  * Cases of one seed are alike, so n cases count as n over the design effect, the variance between
  * seeds over that of independent draws (Kish 1965), at least 1:
- * p +/- 1.96 sqrt(p (1-p) deff/n).
+ * p +/- 1.96 sqrt(p (1-p) deff/n). Where all cases or none are hits it cannot be had, and each seed
+ * counts as one.
  */
 export function binomialInterval(
   p: number,
@@ -26,7 +27,7 @@ export function binomialInterval(
       ? (counted.reduce((sum, g) => sum + (g.hits - g.cases * share) ** 2, 0) * m) / (m - 1)
       : 0;
   const single = cases * share * (1 - share);
-  const effect = single > 0 ? Math.max(1, between / single) : 1;
+  const effect = single > 0 ? Math.max(1, between / single) : Math.max(1, cases / m);
   const effective = cases / effect;
   const half = TWO_SIDED_95 * Math.sqrt((p * (1 - p)) / effective);
   return { low: Math.max(0, p - half), high: Math.min(1, p + half), share, cases, effective };
