@@ -97,7 +97,7 @@ export const ERRORS = {
   INTERRUPTED: {
     exit: 'interrupted',
     meaning: 'A command was stopped by a signal before it had done its work.',
-    advice: 'What it has written so far is whole; run it again for all of it.',
+    advice: 'Run it again for all of it; lines that it has written are whole.',
   },
   INTERNAL: {
     exit: 'internal',

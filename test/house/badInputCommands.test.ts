@@ -1,4 +1,4 @@
-import { writeFileSync } from 'node:fs';
+import { readdirSync, writeFileSync } from 'node:fs';
 import { join } from 'node:path';
 import { describe, expect, it } from 'vitest';
 import { loadSite } from '../../src/config/load.js';
@@ -8,7 +8,7 @@ import { rockhour, startRockhour } from '../support/cli.js';
 import { temporaryFolder } from '../support/folders.js';
 import { freePort } from '../support/ports.js';
 import { waitFor } from '../support/wait.js';
-import { refused } from './badInput.js';
+import { expectRefusal, refused } from './badInput.js';
 
 const DEMO = 'config/demo.yaml';
 const folder = temporaryFolder('bad-commands');
@@ -103,6 +103,30 @@ describe('places on the disk and in the network that cannot be', () => {
   ])('a store.folder %s', async (_, place, words) => {
     const { path } = siteFile({ store: { folder: place }, mqtt: { embedded_port: 0 } });
     await refused(['run', '--config', path], 'STORE_FAILED', place, words);
+  });
+});
+
+describe('a demonstration that is interrupted while it is scored', () => {
+  it('says how far it came and leaves no folder behind', async () => {
+    const own = temporaryFolder('interrupted');
+    const child = startRockhour(['demo', '--check-hours', '5000'], { TMPDIR: own });
+    let stderr = '';
+    child.stderr!.on('data', (chunk: Buffer) => {
+      stderr += chunk.toString();
+    });
+    const ended = new Promise<number | null>((resolve) => child.once('close', resolve));
+    await waitFor(
+      'its folder',
+      () => readdirSync(own).some((name) => name.includes('demo')),
+      20_000,
+    );
+    // Under way, not only just begun.
+    await new Promise((resolve) => setTimeout(resolve, 2000));
+    child.kill('SIGINT');
+    const code = await ended;
+    const words = /stopped by SIGINT after [\d.]+ of 5000 simulated hours/;
+    expectRefusal({ code, stdout: '', stderr }, 'INTERRUPTED', words);
+    expect(readdirSync(own)).toEqual([]);
   });
 });
 
