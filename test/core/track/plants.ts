@@ -153,7 +153,7 @@ export const FULL_ROLES: Readonly<Record<string, ChannelRole>> = {
 
 /** A unit of about 0.1 MW for 6 h with a hot and a cold store and the gas cycle between them. */
 export function unitOf(
-  over: Partial<UnitDefinition> & {
+  over: Omit<Partial<UnitDefinition>, 'estimator'> & {
     roles?: Readonly<Record<string, ChannelRole>>;
     estimator?: Partial<EstimatorDefinition>;
   } = {},
