@@ -37,7 +37,7 @@ export interface UnitSnapshot {
   readonly state: UnitState;
 }
 
-const SNAPSHOT_VERSION = 1;
+const SNAPSHOT_VERSION = 2;
 const NOTHING: UnitAsk = { hours_at_W: [], profile: false };
 /** Longest run of empty scans that a gap is filled with; a longer gap takes coarser ones. */
 const TICKS_MOST = 2000;
