@@ -4,6 +4,7 @@ import { type BedTables, temperatureAt } from '../bed/tables.js';
 import type { StoreDefinition, UnitDefinition } from '../definitions.js';
 import type { EndCause } from '../estimate.js';
 import type { Machine } from '../machine/machine.js';
+import { exchangeAtWall, type WallModel } from '../track/wallZone.js';
 
 /** One tube as the rollout needs it. */
 export interface RolloutTube {
@@ -12,6 +13,8 @@ export interface RolloutTube {
   readonly flowFactor: number;
   readonly heatTransferFactor: number;
   readonly wallLoss_W_m3K: number;
+  /** Of the zone at the wall: its model and its steel [K]; `wall.model.tube` is the tube beside it. */
+  readonly wall?: { readonly model: WallModel; readonly steel_K: Float64Array };
 }
 
 export interface RolloutStore {
@@ -78,6 +81,9 @@ export function rollOut(
   const { machine } = input;
   const { limits } = input.unit;
   const beds = input.stores.map((s) => s.tubes.map((t) => Float64Array.from(t.enthalpy)));
+  const steels = input.stores.map((s) =>
+    s.tubes.map((t) => (t.wall === undefined ? null : Float64Array.from(t.wall.steel_K))),
+  );
   const times = new Float64Array(RULES.length).fill(Number.POSITIVE_INFINITY);
   const before = new Float64Array(RULES.length).fill(Number.NaN);
   const beforeAt = new Float64Array(RULES.length);
@@ -152,6 +158,7 @@ export function rollOut(
         inlet,
         step_s,
         works[i] ?? [],
+        steels[i] ?? [],
       );
       lags[i] = excessLag(store, plenum[i] as number, out, used, step_s);
       plenum[i] = throughPlenum(store, plenum[i] as number, out, used, step_s);
@@ -178,6 +185,7 @@ function stepStoreBeds(
   inlet_K: number,
   step_s: number,
   works: readonly BedWork[],
+  steels: readonly (Float64Array | null)[],
 ): number {
   let heat = 0;
   let mass = 0;
@@ -198,6 +206,12 @@ function stepStoreBeds(
     for (let n = 0; n < substeps; n++) {
       bedSubstep(store.tables, beds[k] as Float64Array, part, work);
       out += work.outlet_K;
+    }
+    const steel = steels[k] ?? null;
+    if (tube.wall !== undefined && steel !== null) {
+      const { model } = tube.wall;
+      const beside = beds[model.tube] as Float64Array;
+      exchangeAtWall(model, store.tables, beds[k] as Float64Array, steel, beside, step);
     }
     const weight = tube.area_share * flux;
     heat += weight * (out / substeps);

@@ -1,5 +1,6 @@
 import type { StoreModel, StoreState } from './storeTracker.js';
 import type { TubeState } from './tube.js';
+import type { WallModel } from './wallZone.js';
 
 /** A part of the bed with a profile of its own: a string's tube, or the zone at the wall. */
 export interface Stream {
@@ -11,6 +12,8 @@ export interface Stream {
   /** On top of the configured heat-transfer factor. */
   readonly heatTransferFactor: number;
   readonly wallLoss_W_m3K: number;
+  /** Of the zone at the wall: its steel, and the stream beside it by index. */
+  readonly wall?: { readonly model: WallModel; readonly steel_K: Float64Array };
 }
 
 /** All streams of a store: what sums over the cross-section run over. */
@@ -35,7 +38,9 @@ export function streamsOf(model: StoreModel, state: StoreState): Stream[] {
     share: wall.share,
     enthalpy: state.wall.enthalpy,
     outlet_K: state.wall.outlet_K,
-    wallLoss_W_m3K: wall.loss_W_m3K,
+    // Lost through the steel: see exchangeAtWall.
+    wallLoss_W_m3K: 0,
+    wall: { model: wall, steel_K: state.wall.steel_K },
   });
   return streams;
 }

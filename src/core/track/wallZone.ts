@@ -112,48 +112,57 @@ export function stepWall(
   };
   const substeps = planSubsteps(tables, layout.cells, whole);
   const dt = drive.dt_s / substeps;
-  const middle = tables.segments >> 1;
-  const radial =
-    model.radial_1_m2 *
-    ((tables.stagnant[middle] as number) +
-      RADIAL_MIXING *
-        Math.abs(whole.massFlux_kg_m2s) *
-        tables.bed.particle_diameter_m *
-        (tables.fluidHeatCapacity[middle] as number));
   let out = 0;
   for (let n = 0; n < substeps; n++) {
     bedSubstep(tables, wall.enthalpy, { ...whole, dt_s: dt }, scratch.probe);
     out += scratch.probe.outlet_K;
-    for (let i = 0; i < layout.cells; i++) {
-      exchange(model, tables, tube, wall, i, drive.ambient_K, dt, radial);
-    }
+    exchangeAtWall(model, tables, wall.enthalpy, wall.steel_K, tube.enthalpy, {
+      massFlux_kg_m2s: whole.massFlux_kg_m2s,
+      ambient_K: drive.ambient_K,
+      dt_s: dt,
+    });
   }
   wall.outlet_K = out / substeps;
 }
 
-/** Steel relaxes exactly towards zone and ambient; the rest is explicit (hours against the step). */
-function exchange(
+/**
+ * Heat between zone, steel and the outermost tube over a step, all three changed in place. Steel
+ * relaxes exactly towards zone and ambient; the rest is explicit (hours against the step).
+ *
+ * @param zone enthalpy of the zone's cells [J/m3]
+ * @param steel_K temperature of the steel beside each cell [K]
+ * @param tube enthalpy of the outermost tube's cells [J/m3]
+ */
+export function exchangeAtWall(
   model: WallModel,
   tables: BedTables,
-  tube: TubeState,
-  wall: WallState,
-  i: number,
-  ambient_K: number,
-  dt: number,
-  radial_W_m3K: number,
+  zone: Float64Array,
+  steel_K: Float64Array,
+  tube: Float64Array,
+  step: Pick<BedStep, 'massFlux_kg_m2s' | 'ambient_K' | 'dt_s'>,
 ): void {
-  const zone = temperatureAt(tables, wall.enthalpy[i] as number);
-  const steel = wall.steel_K[i] as number;
   const { exchange_W_m3K: x, loss_W_m3K: u, steel_J_m3K: c } = model;
-  const settled = (x * zone + u * ambient_K) / (x + u);
-  const next = settled + (steel - settled) * Math.exp((-(x + u) * dt) / c);
-  // What the steel took, and what it lost meanwhile at its mean temperature.
-  const lost = u * dt * (0.5 * (steel + next) - ambient_K);
-  const taken = c * (next - steel) + lost;
-  const across = radial_W_m3K * dt * (zone - temperatureAt(tables, tube.enthalpy[i] as number));
-  wall.steel_K[i] = next;
-  wall.enthalpy[i] = (wall.enthalpy[i] as number) - taken - across;
-  tube.enthalpy[i] = (tube.enthalpy[i] as number) + across * model.volumeRatio;
+  const dt = step.dt_s;
+  const fade = Math.exp((-(x + u) * dt) / c);
+  const middle = tables.segments >> 1;
+  const mixing =
+    RADIAL_MIXING *
+    Math.abs(step.massFlux_kg_m2s) *
+    tables.bed.particle_diameter_m *
+    (tables.fluidHeatCapacity[middle] as number);
+  const radial = model.radial_1_m2 * ((tables.stagnant[middle] as number) + mixing) * dt;
+  for (let i = 0; i < zone.length; i++) {
+    const t = temperatureAt(tables, zone[i] as number);
+    const steel = steel_K[i] as number;
+    const settled = (x * t + u * step.ambient_K) / (x + u);
+    const next = settled + (steel - settled) * fade;
+    // What the steel took, and what it lost meanwhile at its mean temperature.
+    const lost = u * dt * (0.5 * (steel + next) - step.ambient_K);
+    const across = radial * (t - temperatureAt(tables, tube[i] as number));
+    steel_K[i] = next;
+    zone[i] = (zone[i] as number) - c * (next - steel) - lost - across;
+    tube[i] = (tube[i] as number) + across * model.volumeRatio;
+  }
 }
 
 /** Moves the zone by the correction that its tube has just had. */
