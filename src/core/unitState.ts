@@ -18,8 +18,8 @@ export interface UnitState {
   /** Source time of the last scan with any thermocouple reading. */
   seen_ms: number | null;
   mode: Mode;
-  /** Last state of charge by rollout, when, the least store state of charge then, and d value/d least. */
-  charge: { value: number; time_ms: number; least: number; slope: number } | null;
+  /** Last state of charge by rollout, when, and the least store state of charge then. */
+  charge: { value: number; time_ms: number; least: number } | null;
   readonly unknownTravel_m: number[];
   /** Of the last scan: ambient, and the gas leaving each store while discharging, NaN = not measured [K]. */
   ambient_K: number;

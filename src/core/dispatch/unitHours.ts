@@ -13,9 +13,6 @@ import { machineFactor, stepMachineFactor } from './machineFactor.js';
 const CHARGE_EVERY_S = 600;
 /** A jump of a store's state of charge beyond this asks for a rollout at once. */
 const CHARGE_JUMP = 0.05;
-/** Two rollouts tell a slope where a store has moved by this in between; within this factor of a full unit's. */
-const SLOPE_LEAST = 0.01;
-const SLOPE_MOST = 2;
 
 export function meanFlowFactor(
   model: UnitModel,
@@ -76,9 +73,8 @@ export function hoursInput(model: UnitModel, state: UnitState): HoursInput {
 
 /**
  * Dispatchable over rated energy at rated power. Rolled out every ten minutes and on a change of
- * mode; between, it moves with the store that holds less: as it did between the last rollouts, at
- * first by what a full unit delivers. (That is less: the last of a store's heat is none that can
- * be dispatched.)
+ * mode; between, it moves with the store that holds less, by what a
+ * full unit delivers.
  *
  * @param least state of charge of the store that holds less
  */
@@ -98,16 +94,9 @@ export function stateOfCharge(
     scan.time_ms - last.time_ms >= CHARGE_EVERY_S * 1000 ||
     Math.abs(least - last.least) > CHARGE_JUMP;
   if (due) {
-    const value = centralHours(input, unit.rated_power_W).hours / unit.rated_hours;
-    const full = model.fullHours / unit.rated_hours;
-    let slope = last?.slope ?? full;
-    if (last !== null && Math.abs(least - last.least) > SLOPE_LEAST) {
-      const told = (value - last.value) / (least - last.least);
-      // Half of the news: a change of mode, or of the store that holds less, makes a pair odd.
-      slope += 0.5 * (Math.min(SLOPE_MOST * full, Math.max(full / SLOPE_MOST, told)) - slope);
-    }
-    state.charge = { value, time_ms: scan.time_ms, least, slope };
-    return value;
+    const hours = centralHours(input, unit.rated_power_W).hours;
+    state.charge = { value: hours / unit.rated_hours, time_ms: scan.time_ms, least };
+    return state.charge.value;
   }
-  return Math.max(0, last.value + last.slope * (least - last.least));
+  return Math.max(0, last.value + (model.fullHours / unit.rated_hours) * (least - last.least));
 }
