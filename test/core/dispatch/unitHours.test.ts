@@ -1,0 +1,113 @@
+import { describe, expect, it } from 'vitest';
+import { advance, startUnit } from '../../../src/core/unit.js';
+import { unitModel } from '../../../src/core/unitModel.js';
+import type { UnitState } from '../../../src/core/unitState.js';
+import { type Fronts, frontedScan } from '../track/fronted.js';
+import { unitOf } from '../track/plants.js';
+
+const unit = unitOf();
+const NONE = { hours_at_W: [], profile: false };
+const RUNNING = { flow: 0.9, mode: 1, power: 90e3, ambient: 283 };
+
+/** The unit's state of charge scan by scan, with fronts that stand where `at` says. */
+function charges(
+  scans: number,
+  at: (n: number) => Fronts,
+  mode: (n: number) => number = () => 0,
+): { state: UnitState; soc: number[] } {
+  const state = startUnit(unit);
+  const soc = Array.from({ length: scans }, (_, n) => {
+    const others = { flow: mode(n) * 0.9, mode: mode(n), ambient: 283 };
+    const scan = frontedScan(unit, (n + 1) * 60_000, at(n), others);
+    return advance(unit, state, scan, NONE).estimate.state_of_charge;
+  });
+  return { state, soc };
+}
+
+describe('the state of charge of a unit', () => {
+  it('of full stores is the hours of a full unit over the rated ones', () => {
+    const { soc } = charges(3, () => ({ hot: 2, cold: 2 }));
+    const full = unitModel(unit).fullHours / unit.rated_hours;
+    // Profiles drawn straight through full readings are full to the last kelvin.
+    for (const value of soc) expect(value / full).toBeCloseTo(1, 2);
+  });
+
+  it('of empty stores is none, never less', () => {
+    const { soc } = charges(30, () => ({ hot: -1, cold: -1 }));
+    expect(soc[0]).toBe(0);
+    for (const value of soc) {
+      expect(value).toBeGreaterThanOrEqual(0);
+      // Between rollouts it follows a store's charge, which wanders by millionths.
+      expect(value).toBeLessThan(1e-4);
+    }
+  });
+
+  it('is that of the store that holds less', () => {
+    const [hotLess] = charges(1, () => ({ hot: 0.5, cold: 1.5 })).soc;
+    const [coldLess] = charges(1, () => ({ hot: 1.5, cold: 0.5 })).soc;
+    const [both] = charges(1, () => ({ hot: 0.5, cold: 0.5 })).soc;
+    expect(both).toBeLessThanOrEqual(Math.min(hotLess as number, coldLess as number) + 1e-9);
+    expect(both).toBeGreaterThan(0.9 * Math.min(hotLess as number, coldLess as number));
+  });
+
+  it('is rolled out every ten minutes, on a change of mode and on a jump, and moves between', () => {
+    const state = startUnit(unit);
+    const rolled: number[] = [];
+    for (let n = 0; n < 40; n++) {
+      const mode = n < 15 ? 1 : 0;
+      const at = n < 32 ? 0.4 + 0.003 * Math.min(n, 15) : 0.7;
+      const others = { flow: 0.9 * mode, mode };
+      const before = state.charge;
+      const scan = frontedScan(unit, n * 60_000, { hot: at, cold: at }, others);
+      const { state_of_charge } = advance(unit, state, scan, NONE).estimate;
+      if (state.charge !== before) {
+        rolled.push(n);
+        expect(state_of_charge).toBe(state.charge?.value);
+      } else expect(state_of_charge).not.toBe(before?.value);
+    }
+    // At the start, after ten minutes, when it stops, ten minutes on, and when the estimate that is
+    // lost at scan 32 has been drawn anew.
+    expect(rolled).toEqual([0, 10, 15, 25, 34]);
+  });
+});
+
+describe('the machine factor of a unit', () => {
+  function learned(over: Record<string, number>, scans = 240): UnitState {
+    const state = startUnit(unit);
+    for (let n = 0; n < scans; n++) {
+      const scan = frontedScan(
+        unit,
+        (n + 1) * 60_000,
+        { hot: 0.5, cold: 0.5 },
+        { ...RUNNING, ...over },
+      );
+      advance(unit, state, scan, NONE);
+    }
+    return state;
+  }
+
+  it('is learned while it runs, of its direction alone', () => {
+    const { factors } = learned({});
+    expect(factors.charge.variance).not.toBeNull();
+    expect(factors.discharge.variance).toBeNull();
+  });
+
+  it('follows the power per metered kilogram', () => {
+    const ratio =
+      Math.exp(learned({ power: 94.4e3 }).factors.charge.log) /
+      Math.exp(learned({}).factors.charge.log);
+    // (94.4 - 2)/(90 - 2) = 1.05 by the auxiliaries' 2 kW; the filter has gone all but 3 % of the way.
+    expect(ratio).toBeGreaterThan(1.04);
+    expect(ratio).toBeLessThan(1.0501);
+  });
+
+  it('is not learned while the meter is silent, refuted or stood in for', () => {
+    expect(learned({ flow: Number.NaN }, 60).factors.charge.variance).toBeNull();
+    expect(learned({ flow: 0 }, 60).factors.charge.variance).toBeNull();
+  });
+
+  it('is not learned while it stands', () => {
+    const { factors } = learned({ flow: 0, mode: 0, power: 300 }, 60);
+    expect(factors.charge.variance).toBeNull();
+  });
+});
