@@ -54,9 +54,9 @@ function dayOf(scans: number, of: UnitDefinition = unit): Scan[] {
   });
 }
 
-const askAt = (scan: Scan): UnitAsk => ((scan.time_ms / PERIOD_MS) % 5 === 0 ? ALL : PROFILE);
+const askAt = (scan: Scan): UnitAsk => ((scan.time_ms / PERIOD_MS) % 10 === 0 ? ALL : PROFILE);
 
-/** Takes scans in, the profile with each and hours with every fifth. */
+/** Takes scans in, the profile with each and hours with every tenth. */
 function runAll(state: UnitState, scans: readonly Scan[], of = unit): UnitStep[] {
   return scans.map((scan) => advance(of, state, scan, askAt(scan)));
 }
@@ -137,7 +137,7 @@ describe('a unit', () => {
 
   it('gives the same hours between scans as with the scan', () => {
     const state = startUnit(unit);
-    const steps = runAll(state, dayOf(26));
+    const steps = runAll(state, dayOf(21));
     expect(hoursAt(unit, state, [60e3])).toEqual(steps.at(-1)?.estimate.dispatch);
   });
 });
@@ -158,8 +158,8 @@ describe('hours due', () => {
 });
 
 describe('a saved unit', () => {
-  it.each([1, 7, 13, 29])('goes on to the last bit after %i scans', (cut) => {
-    const scans = dayOf(40);
+  it.each([1, 7, 22])('goes on to the last bit after %i scans', (cut) => {
+    const scans = dayOf(31);
     const whole = startUnit(unit);
     const steps = runAll(whole, scans);
     const half = startUnit(unit);
@@ -353,7 +353,7 @@ describe('readings that are none', () => {
           }
         }
       }),
-      { numRuns: 25 },
+      { numRuns: 15 },
     );
   });
 

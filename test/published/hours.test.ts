@@ -122,13 +122,13 @@ describe('breakthrough of a discharge at constant flow without losses (Schumann 
 
 describe('hours of the finer plant, by running it on', () => {
   // Physics, machine, meter and sensors all drawn within the uncertainty of a real plant. What the
-  // estimator says after half a day's watch against what the plant then does.
-  it.each([1, 2, 3])('are those told, within two hundredths of the rated ones: seed %i', (seed) => {
+  // estimator says after two hours' watch against what the plant then does.
+  it.each([1, 2])('are those told, within two hundredths of the rated ones: seed %i', (seed) => {
     const plant = new WatchedPlant({ seed });
     plant.watch([
-      { mode: 'charge', power_W: 2.4e6, duration_s: 1.5 * H },
-      { mode: 'discharge', power_W: 1.6e6, duration_s: 1 * H },
-      { mode: 'charge', power_W: 2.4e6, duration_s: 0.5 * H },
+      { mode: 'charge', power_W: 2.4e6, duration_s: 1.2 * H },
+      { mode: 'discharge', power_W: 1.6e6, duration_s: 0.7 * H },
+      { mode: 'charge', power_W: 2.4e6, duration_s: 0.3 * H },
     ]);
     const { unit, state } = plant;
     for (const power_W of [1.8e6, 1.2e6]) {

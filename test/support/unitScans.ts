@@ -11,5 +11,9 @@ export function unitScan(unit: UnitDefinition, { time_s, readings }: ScanReading
 /** A scan without any reading. */
 export function emptyScan(unit: UnitDefinition, time_ms: number): Scan {
   const { length } = unit.channels;
-  return { time_ms, values: new Float64Array(length).fill(Number.NaN), held: new Uint8Array(length) };
+  return {
+    time_ms,
+    values: new Float64Array(length).fill(Number.NaN),
+    held: new Uint8Array(length),
+  };
 }
