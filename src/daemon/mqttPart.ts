@@ -8,6 +8,9 @@ import type { Log } from '../log.js';
 import type { DaemonClock } from './clock.js';
 import type { Notices } from './notices.js';
 
+/** A start waits this long for the broker's first word; one that is away does not hold it up [ms]. */
+const FIRST_WORD_MS = 2000;
+
 export interface MqttPartOptions {
   readonly config: MqttConfig;
   readonly site: string;
@@ -27,6 +30,8 @@ export class MqttPart {
   private readonly broker: EmbeddedBroker | null;
   private refusal: string | null = null;
   private lost: string | null = null;
+  /** The broker has been reached, or could not be. */
+  private heard: () => void = () => undefined;
 
   constructor(private readonly options: MqttPartOptions) {
     const { config, intake } = options;
@@ -47,6 +52,7 @@ export class MqttPart {
       up: () => this.up(),
       down: (reason) => {
         this.lost = reason;
+        this.heard();
         // By kind and minute: two clients with one client id would push each other out for ever.
         options.notices.warn(
           'mqtt_down',
@@ -98,10 +104,20 @@ export class MqttPart {
     await this.broker?.stop();
   }
 
-  startLink(): void {
+  /**
+   * Resolves once the subscriptions stand: what is published from then on is not lost. Where the
+   * broker is away, once that is known.
+   */
+  async startLink(): Promise<void> {
+    const heard = new Promise<void>((resolve) => {
+      this.heard = resolve;
+    });
+    const limit = setTimeout(() => this.heard(), FIRST_WORD_MS);
     this.options.intake.start();
     this.announcer.start();
     this.link.start();
+    await heard;
+    clearTimeout(limit);
   }
 
   /** What has come in is committed and acknowledged, the farewell said, then the link ended. */
@@ -116,6 +132,7 @@ export class MqttPart {
   }
 
   private up(): void {
+    this.heard();
     this.refusal = null;
     this.options.notices.info('mqtt_up', `connected to the MQTT broker ${this.name}`);
     this.announcer.connected();
