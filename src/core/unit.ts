@@ -11,7 +11,7 @@ import type { TubeState } from './track/tube.js';
 import { describe } from './unitDescribe.js';
 import { unitModel } from './unitModel.js';
 import type { UnitState } from './unitState.js';
-import { takeIn } from './unitTakeIn.js';
+import { FORGET_MS, forget, takeIn } from './unitTakeIn.js';
 import type { WatchEvent } from './watch/event.js';
 import { startWatch } from './watch/watch.js';
 
@@ -40,7 +40,7 @@ export interface UnitSnapshot {
 const SNAPSHOT_VERSION = 2;
 const NOTHING: UnitAsk = { hours_at_W: [], profile: false };
 /** Longest run of empty scans that a gap is filled with; a longer gap takes coarser ones. */
-const TICKS_MOST = 2000;
+const TICKS_MOST = 720;
 
 export function startUnit(unit: UnitDefinition): UnitState {
   const model = unitModel(unit);
@@ -62,7 +62,8 @@ export function startUnit(unit: UnitDefinition): UnitState {
 
 /**
  * Takes one scan in. Where scans are missing since the last one, time passes in empty scans at the
- * scan period first, exactly as if the daemon had closed them at their deadlines.
+ * scan period first, exactly as if the daemon had closed them at their deadlines. After more than
+ * a day without scans the beds are forgotten and start anew from the readings.
  *
  * @throws RangeError for a scan not later than the last, or of the wrong length
  */
@@ -82,6 +83,7 @@ export function advance(
     );
   }
   const events: WatchEvent[] = [];
+  if (state.time_ms !== null && scan.time_ms - state.time_ms > FORGET_MS) forget(model, state);
   for (const time_ms of missingTicks(unit, state.time_ms, scan.time_ms)) {
     const values = new Float64Array(unit.channels.length).fill(Number.NaN);
     const empty = { time_ms, values, held: new Uint8Array(values.length) };
@@ -95,6 +97,8 @@ export function advance(
 function missingTicks(unit: UnitDefinition, last_ms: number | null, now_ms: number): number[] {
   if (last_ms === null) return [];
   const period = unit.scan_period_s * 1000;
+  // Nothing is left to move through a gap that was forgotten; one empty scan tells the watch of it.
+  if (now_ms - last_ms > FORGET_MS) return [Math.max(last_ms + 1, now_ms - period)];
   const from = Math.floor(last_ms / period) + 1;
   const to = Math.floor(now_ms / period);
   const stride = Math.max(1, Math.ceil((to - from) / TICKS_MOST));
@@ -112,6 +116,7 @@ export function hoursDue(unit: UnitDefinition, last_ms: number | null, now_ms: n
   return Math.floor(now_ms / every) !== Math.floor(last_ms / every);
 }
 
+/** An image of everything that a unit remembers; later scans do not change it. */
 export function saveUnit(state: UnitState): UnitSnapshot {
   return { version: SNAPSHOT_VERSION, state: structuredClone(state) };
 }

@@ -48,7 +48,8 @@ export function describe(model: UnitModel, state: UnitState, taken: Taken, ask: 
     ),
     stores,
   };
-  if (ask.hours_at_W.length > 0) {
+  const started = state.stores.every((store) => store.started);
+  if (ask.hours_at_W.length > 0 && started) {
     estimate.dispatch = ask.hours_at_W.map((power) => computeHours(input, power));
   }
   const profile: ProfileView | null = ask.profile
@@ -73,6 +74,10 @@ export function describe(model: UnitModel, state: UnitState, taken: Taken, ask: 
   return { estimate, profile, events };
 }
 
+/** A state of charge less certain than this is no guide, or not good [-]. */
+const BLIND_SIGMA = 0.25;
+const GOOD_SIGMA = 0.05;
+
 function qualityOf(model: UnitModel, state: UnitState, taken: Taken): Quality {
   const age_s = state.seen_ms === null ? Infinity : (taken.scan.time_ms - state.seen_ms) / 1000;
   if (age_s > model.unit.watch.data_age_s.limit) return 'stale';
@@ -80,6 +85,9 @@ function qualityOf(model: UnitModel, state: UnitState, taken: Taken): Quality {
   const used = state.stores.reduce((sum, store) => sum + store.used, 0);
   if (used === 0 && !taken.conditions.flowKnown) return 'blind';
   const settled = state.stores.every((store) => store.settled >= 10);
+  const sigma = Math.max(...taken.stores.map(({ energy }) => energy.soc_sigma));
+  if (sigma > BLIND_SIGMA) return 'blind';
+  if (sigma > GOOD_SIGMA) return 'degraded';
   if (taken.implausible > 0 || taken.conditions.flowStandIn) return 'degraded';
   if (!taken.conditions.flowKnown || used < 0.6 * model.thermocouples.length || !settled) {
     return 'degraded';

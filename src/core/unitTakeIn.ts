@@ -1,14 +1,14 @@
 import { learnMachine } from './dispatch/unitHours.js';
 import type { FrontEstimate, FrontReason } from './estimate.js';
 import type { Scan } from './scan/scan.js';
-import { type Conditions, readConditions } from './track/conditions.js';
+import { type Conditions, readConditions, startConditions } from './track/conditions.js';
 import { driveOf, storeOutlets, unknownTravel } from './track/drive.js';
 import type { FrontViewStep } from './track/frontView.js';
 import { withoutImplausible } from './track/plausible.js';
 import { type StoreEnergy, storeEnergy } from './track/storeEnergy.js';
 import { storeFronts } from './track/storeEstimate.js';
-import { type StoreState, type StoreStep, stepStore } from './track/storeTracker.js';
-import { type StoreViews, stepViews } from './track/storeViews.js';
+import { type StoreState, type StoreStep, startStore, stepStore } from './track/storeTracker.js';
+import { type StoreViews, startViews, stepViews } from './track/storeViews.js';
 import { followOrigin } from './track/unseenFlow.js';
 import type { UnitModel } from './unitModel.js';
 import type { UnitState } from './unitState.js';
@@ -33,6 +33,20 @@ export interface TakenStore {
   readonly views: readonly FrontViewStep[];
 }
 
+/** Without any thermocouple for this long the beds are forgotten: anything may have happened. */
+export const FORGET_MS = 24 * 3600 * 1000;
+
+/** Beds, front views and twins start anew from the next readings; machine factors and watch stay. */
+export function forget(model: UnitModel, state: UnitState): void {
+  model.stores.forEach((store, s) => {
+    state.stores[s] = startStore(store);
+    state.views[s] = startViews(store);
+    state.unknownTravel_m[s] = 0;
+  });
+  Object.assign(state.conditions, startConditions());
+  state.charge = null;
+}
+
 /** Takes one scan into a unit's state: conditions, tubes, front views, twin, machine factor. */
 export function takeIn(model: UnitModel, state: UnitState, raw: Scan): Taken {
   const { unit } = model;
@@ -49,12 +63,16 @@ export function takeIn(model: UnitModel, state: UnitState, raw: Scan): Taken {
     outlets,
   );
   const thermocouples = model.thermocouples.filter((i) => Number.isFinite(scan.values[i])).length;
-  if (thermocouples > 0) state.seen_ms = scan.time_ms;
+  if (thermocouples > 0) {
+    if (state.seen_ms !== null && scan.time_ms - state.seen_ms > FORGET_MS) forget(model, state);
+    state.seen_ms = scan.time_ms;
+  }
   const stores = model.stores.map((store, s): TakenStore => {
     const travel = unknownTravel(model, state, s, dt_s, conditions);
-    const drive =
-      state.time_ms === null ? null : driveOf(model, s, conditions, scan, dt_s, outlets, travel);
     const storeState = state.stores[s] as StoreState;
+    // Nothing to move before the first readings, nor over the gap in which the beds were forgotten.
+    const moves = state.time_ms !== null && storeState.started;
+    const drive = moves ? driveOf(model, s, conditions, scan, dt_s, outlets, travel) : null;
     const step = stepStore(
       store,
       storeState,

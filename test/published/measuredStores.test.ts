@@ -111,8 +111,8 @@ describe('measured salt thermocline, discharging', () => {
     expect(rms).toBeLessThan(6);
     // About 79 readings: a consistent sigma gives 1 +/- 0.08 with independent errors; those of one
     // figure are not, so twice that band on either side is asked.
-    expect(ratio).toBeGreaterThan(0.7);
-    expect(ratio).toBeLessThan(1.3);
+    expect(ratio).toBeGreaterThan(0.84);
+    expect(ratio).toBeLessThan(1.16);
   });
 });
 

@@ -68,7 +68,8 @@ const FOLLOW = 0.3;
  * together: each step takes the metered flow m that P needs at the present mixed outlets,
  * m = (P + aux)/(w(T_hot, T_cold) kappa), and gives each tube m f_k/A.
  *
- * The outlet-temperature rules wait until the plenum is swept, 10 minutes at most; where they are
+ * The rules wait until the plenum is swept, 10 minutes at most, and until then the flow is that of
+ * what the beds deliver: gas that stood in a cold pipe must not end a discharge. Where a rule is
  * still broken then, the discharge has not begun: 0 h. Each rule's time is interpolated within its
  * step, so the result is smooth in the state. What leaves a bed is known as the mean of a step, so
  * it counts for that step's middle, later by the lag of the plenum (see `excessLag`); the flow of a
@@ -90,6 +91,7 @@ export function rollOut(
   const plenum = input.stores.map((s, i) =>
     Number.isFinite(s.plenum_K) ? s.plenum_K : mixedEnd(s, beds[i] as Float64Array[]),
   );
+  const delivered = input.stores.map((s, i) => mixedEnd(s, beds[i] as Float64Array[]));
   const hotIndex = input.stores.findIndex((s) => s.store.kind === 'hot');
   const coldIndex = input.stores.findIndex((s) => s.store.kind === 'cold');
   let swept = false;
@@ -99,9 +101,11 @@ export function rollOut(
   let flowBefore = Number.NaN;
   let step_s = input.step_s / SWEEP_PARTS;
   for (let t = 0; t <= input.most_s; t += step_s) {
+    // Until the lids are swept the flow is that of what the beds deliver, not of a cold pipe.
+    const seen = swept ? plenum : delivered;
     const outlets = {
-      hot_K: plenum[hotIndex] ?? Number.NaN,
-      cold_K: coldIndex >= 0 ? (plenum[coldIndex] as number) : null,
+      hot_K: seen[hotIndex] ?? Number.NaN,
+      cold_K: coldIndex >= 0 ? (seen[coldIndex] as number) : null,
     };
     const point = machine.operate('discharge', outlets, input.ambient_K);
     const work = point.specificWork_J_kg * input.workFactor;
@@ -126,7 +130,7 @@ export function rollOut(
     const mean = lags.reduce((sum, lag) => sum + lag, 0) / lags.length;
     margins.forEach((margin, r) => {
       if (times[r] !== Number.POSITIVE_INFINITY || Number.isNaN(margin)) return;
-      if (r <= 1 && !swept) return;
+      if (!swept) return;
       const at = t - (lags[r === 0 ? hotIndex : r === 1 ? coldIndex : -1] ?? mean);
       if (margin > 0) {
         before[r] = margin;
@@ -140,11 +144,11 @@ export function rollOut(
         : at - ((at - (beforeAt[r] as number)) * margin) / (margin - last);
       first = Math.min(first, times[r] as number);
     });
-    if (!Number.isFinite(flow) || t > first * (1 + FOLLOW) || (first === 0 && swept)) break;
+    if (swept && (!Number.isFinite(flow) || t > first * (1 + FOLLOW) || first === 0)) break;
     // Past its first broken rule the flow may run away; the rest only serves the other rules' times.
     const ahead = flow + (flow - flowBefore) * (0.5 + mean / step_s);
     const middle = ahead > 0 ? ahead : flow;
-    const used = Math.min(middle, 2 * limits.discharge.flow_max_kg_s);
+    const used = Math.min(middle, (swept ? 2 : 1) * limits.discharge.flow_max_kg_s);
     // While the lids are swept the flow says nothing of what follows.
     if (swept) flowBefore = flow;
     input.stores.forEach((store, i) => {
@@ -160,6 +164,7 @@ export function rollOut(
         works[i] ?? [],
         steels[i] ?? [],
       );
+      delivered[i] = out;
       lags[i] = excessLag(store, plenum[i] as number, out, used, step_s);
       plenum[i] = throughPlenum(store, plenum[i] as number, out, used, step_s);
       sweptMass[i] = (sweptMass[i] as number) + used * step_s;

@@ -73,6 +73,7 @@ export function rememberStart(
   const readings = new Set(
     usableReadings(model, state, values).map((r) => `${r.tube}/${r.sensor}`),
   );
+  const present = model.channels.flat().some((at) => Number.isFinite(values[at] as number));
   model.tubes.forEach((tube, k) => {
     for (let s = 0; s < tube.layout.sensors; s++) {
       if (readings.has(`${k}/${s}`)) continue;
@@ -80,7 +81,7 @@ export function rememberStart(
       judgeSensor(state.sensors[k]?.[s] as SensorMemory, {
         time_ms,
         value_K: values[model.channels[k]?.[s] as number] as number,
-        othersPresent: true,
+        othersPresent: present,
         predicted_K: (hot + cold) / 2,
         sigma_K: (hot - cold) / 2,
         deadband_K: 0,

@@ -114,9 +114,9 @@ export function stepStore(
   state.settled = Math.min(SETTLED_MAX, state.settled + 1);
   if (!state.started) {
     const readings = usableReadings(model, state, values);
+    rememberStart(model, state, values, time_ms);
     if (readings.length < 2) return 'not_started';
     restart(model, state, values, 1);
-    rememberStart(model, state, values, time_ms);
     state.started = true;
     return 'reacquired';
   }
