@@ -41,7 +41,7 @@ export const unitSchema = z.strictObject({
   hours_every_min: key(positive(1440), 'min', 'How often they are computed.', 10).default(10),
   stores: section(
     z.array(section(storeSchema, 'A packed bed.')).min(1).max(2),
-    'One or two stores: a hot one, a cold one or both.',
+    'A hot store alone, or a hot and a cold one.',
   ),
   channels: section(
     z.array(section(channelSchema, 'A channel.')).max(500).default([]),

@@ -28,6 +28,8 @@ export interface TwinState {
   startWidthVariance_m4: number;
   /** True after a stretch of unknown flow: its history is no longer the bed's. */
   lost: boolean;
+  /** Time since the loss with everything known [s]. */
+  sound_s: number;
   /** Counted: starts from the estimate after the first, and times its history was lost. */
   restarts: number;
   losses: number;
@@ -58,6 +60,8 @@ const UNIFORM_K = 5;
 const UNIFORM_SHARE = 0.02;
 /** Unknown travel beyond this share of the bed's length loses the history. */
 const LOST_SHARE = 0.05;
+/** A lost twin starts anew once flow and readings have been known again for this long [s]. */
+const SOUND_S = 3600;
 
 export function twinModel(store: StoreDefinition, tables: BedTables, cells: number): TwinModel {
   const { reference_hot_K: hot, reference_cold_K: cold } = store;
@@ -79,6 +83,7 @@ export function startTwin(): TwinState {
     startWidth_m2: 0,
     startWidthVariance_m4: 0,
     lost: false,
+    sound_s: 0,
     restarts: 0,
     losses: 0,
   };
@@ -100,7 +105,9 @@ export function startTwin(): TwinState {
  * width where the estimate gives none), for as long as that front is in the bed. Later only where
  * the estimate is uniform (spans less than 5 K or 2 % of the references' range), when a new start
  * can hide nothing, and the twin is lost or further than twice that from it: counted. After unknown
- * flow worth more than 5 % of the length the twin is lost (counted) until such a start. A front
+ * flow worth more than 5 % of the length the twin is lost (counted) until such a start, or until flow and
+ * readings have been known for an hour: it then starts from the estimate, which hides a spread that
+ * was there before, but a bed that never becomes uniform would otherwise be watched no more. A front
  * that leaves the bed leaves the twin as well, which needs no start.
  *
  * @param state changed in place
@@ -134,6 +141,12 @@ export function stepTwin(model: TwinModel, state: TwinState, input: TwinInput): 
   if (input.unknownTravel_m > LOST_SHARE * store.bed.length_m && !state.lost) {
     state.lost = true;
     state.losses++;
+  }
+  state.sound_s = state.lost && input.unknownTravel_m === 0 ? state.sound_s + input.dt_s : 0;
+  if (state.sound_s >= SOUND_S) {
+    state.restarts++;
+    begin(model, state, input);
+    return;
   }
   if (frontGone(model, state.enthalpy)) {
     // The next front comes to be in bed and twin alike: nothing of the start is in it.
@@ -171,6 +184,7 @@ function begin(model: TwinModel, state: TwinState, input: TwinInput): void {
   state.startWidth_m2 = 0;
   state.startWidthVariance_m4 = 0;
   state.lost = false;
+  state.sound_s = 0;
   const front = profileFronts(model, input.mean_K).fronts[0];
   if (front === undefined) return;
   // Without both crossings in the bed: an erf front has the slope (Th - Tc)/(w sqrt(2 pi)).
