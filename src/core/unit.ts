@@ -1,7 +1,6 @@
 import type { UnitDefinition } from './definitions.js';
-import { computeHours } from './dispatch/hours.js';
 import { startMachineFactor } from './dispatch/machineFactor.js';
-import { hoursInput } from './dispatch/unitHours.js';
+import { hoursOf } from './dispatch/unitHours.js';
 import type { DispatchAnswer, Estimate, ProfileView } from './estimate.js';
 import type { Scan } from './scan/scan.js';
 import { startConditions } from './track/conditions.js';
@@ -156,7 +155,5 @@ export function hoursAt(
   state: UnitState,
   powers_W: readonly number[],
 ): DispatchAnswer[] {
-  const model = unitModel(unit);
-  const input = hoursInput(model, state);
-  return powers_W.map((power) => computeHours(input, power));
+  return hoursOf(unitModel(unit), state, powers_W);
 }

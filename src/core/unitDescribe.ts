@@ -1,5 +1,4 @@
-import { computeHours } from './dispatch/hours.js';
-import { hoursInput, stateOfCharge } from './dispatch/unitHours.js';
+import { hoursInput, hoursOf, stateOfCharge } from './dispatch/unitHours.js';
 import type { Estimate, ProfileView, Quality, StoreEstimate } from './estimate.js';
 import { estimateStore, profileOf } from './track/storeEstimate.js';
 import type { StoreState } from './track/storeTracker.js';
@@ -48,9 +47,8 @@ export function describe(model: UnitModel, state: UnitState, taken: Taken, ask: 
     ),
     stores,
   };
-  const started = state.stores.every((store) => store.started);
-  if (ask.hours_at_W.length > 0 && started) {
-    estimate.dispatch = ask.hours_at_W.map((power) => computeHours(input, power));
+  if (ask.hours_at_W.length > 0) {
+    estimate.dispatch = hoursOf(model, state, ask.hours_at_W);
   }
   const profile: ProfileView | null = ask.profile
     ? {

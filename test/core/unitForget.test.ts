@@ -82,14 +82,16 @@ describe('a cold pipe', () => {
 });
 
 describe('a store that has not started', () => {
-  it('gives no hours, and names the thermocouples that read what no plant produces', () => {
+  it('gives nothing firm, and names the thermocouples that read what no plant produces', () => {
     const state = startUnit(unit);
     const scan = scanAt(0, 0, 300);
     unit.channels.forEach((channel, i) => {
       if (channel.role.kind === 'thermocouple') scan.values[i] = 1100;
     });
     const { estimate } = advance(unit, state, scan, HOURS);
-    expect(estimate.dispatch).toBeUndefined();
+    const hours = estimate.dispatch?.[0]?.hours;
+    expect(hours).toMatchObject({ p90: 0, p50: 0 });
+    expect(hours?.p10).toBeGreaterThan(5); // anything up to a full unit's
     expect(estimate.quality).toBe('blind');
     const verdicts = Object.values(estimate.stores).flatMap((s) => s.sensors.rejected);
     expect(verdicts.length).toBeGreaterThan(0);

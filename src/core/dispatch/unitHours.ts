@@ -1,4 +1,5 @@
 import type { Direction } from '../definitions.js';
+import type { DispatchAnswer } from '../estimate.js';
 import type { StoreTemperatures } from '../machine/machine.js';
 import type { Scan } from '../scan/scan.js';
 import type { Conditions } from '../track/conditions.js';
@@ -6,7 +7,7 @@ import { meanFactor } from '../track/storeEstimate.js';
 import type { StoreState } from '../track/storeTracker.js';
 import type { UnitModel } from '../unitModel.js';
 import type { UnitState } from '../unitState.js';
-import { centralHours, type HoursInput } from './hours.js';
+import { centralHours, computeHours, type HoursInput } from './hours.js';
 import { machineFactor, stepMachineFactor } from './machineFactor.js';
 
 /** A rollout for the state of charge at least this often [s]. */
@@ -99,4 +100,29 @@ export function stateOfCharge(
     return state.charge.value;
   }
   return Math.max(0, last.value + (model.fullHours / unit.rated_hours) * (least - last.least));
+}
+
+/** Hours and energy at given powers [W] from the present state. */
+export function hoursOf(
+  model: UnitModel,
+  state: UnitState,
+  powers_W: readonly number[],
+): DispatchAnswer[] {
+  if (!state.stores.every((store) => store.started)) {
+    return powers_W.map((power) => unknownHours(model, power));
+  }
+  const input = hoursInput(model, state);
+  return powers_W.map((power) => computeHours(input, power));
+}
+
+/** Before every store has started anything between nothing and all is possible: nothing is firm. */
+function unknownHours(model: UnitModel, power_W: number): DispatchAnswer {
+  const most = (model.fullHours * model.unit.rated_power_W) / power_W;
+  const power_MW = power_W / 1e6;
+  return {
+    power_MW,
+    hours: { p90: 0, p50: 0, p10: most },
+    energy_MWh_el: { p90: 0, p50: 0, p10: most * power_MW },
+    ends_by: 'empty',
+  };
 }
