@@ -172,13 +172,13 @@ describe('heat capacity that depends on temperature (White, McTigue, Markides 20
   });
 
   it('sharpens to a shock while discharging, that moves with the mean heat capacity', () => {
-    const near = widthAfter(700, 300, 6);
+    const near = widthAfter(700, 300, 10);
     const far = widthAfter(700, 300, 14);
     const spread = widthAfter(300, 700, 10);
-    // A front without the effect widens by sqrt(14/6) = 1.53 between the two; a shock keeps its shape.
-    expect(far.width / near.width).toBeLessThan(1.03);
+    // A front without the effect widens by sqrt(14/10) = 1.18 between the two; a shock keeps its shape.
+    expect(Math.abs(far.width / near.width - 1)).toBeLessThan(0.02);
     expect(spread.width).toBeGreaterThan(3 * far.width);
-    // Speed G cf/(C_mean), C_mean from [h(Th)-h(Tc)]/(Th-Tc): 8 m further to within a cell.
-    expect(Math.abs(far.x50 - near.x50 - 8)).toBeLessThan(bed.length_m / cells);
+    // Speed G cf/(C_mean), C_mean from [h(Th)-h(Tc)]/(Th-Tc): 4 m further to within a cell.
+    expect(Math.abs(far.x50 - near.x50 - 4)).toBeLessThan(bed.length_m / cells);
   });
 });

@@ -5,6 +5,7 @@ import type { StoreDefinition, UnitDefinition } from '../definitions.js';
 import type { EndCause } from '../estimate.js';
 import type { Machine } from '../machine/machine.js';
 import { exchangeAtWall, type WallModel } from '../track/wallZone.js';
+import { excessLag, isSwept, throughPlenum } from './plenum.js';
 
 /** One tube as the rollout needs it. */
 export interface RolloutTube {
@@ -123,7 +124,7 @@ export function rollOut(
       limits.pressure_drop_max_Pa === null ? Number.NaN : limits.pressure_drop_max_Pa - drop,
       point.specificWork_J_kg,
     ];
-    if (!swept && (t >= SWEEP_MOST_S || isSwept(input, plenum, sweptMass, t))) {
+    if (!swept && (t >= SWEEP_MOST_S || isSwept(input.stores, plenum, sweptMass, t))) {
       swept = true;
     }
     if (swept) step_s = input.step_s;
@@ -232,66 +233,6 @@ function mixedEnd(store: RolloutStore, beds: readonly Float64Array[]): number {
     sum += tube.area_share * temperatureAt(store.tables, beds[k]?.[0] as number);
   });
   return sum;
-}
-
-/** Well-mixed node of gas and steel: T' = out + (T - out) exp(-dt/tau), tau = (C + rho V cp)/(m cp). */
-function throughPlenum(
-  store: RolloutStore,
-  plenum_K: number,
-  out_K: number,
-  flow_kg_s: number,
-  dt_s: number,
-): number {
-  const tau = plenumTime(store, plenum_K, out_K, flow_kg_s);
-  return tau <= 0 ? out_K : out_K + (plenum_K - out_K) * Math.exp(-dt_s / tau);
-}
-
-function plenumTime(
-  store: RolloutStore,
-  plenum_K: number,
-  out_K: number,
-  flow_kg_s: number,
-): number {
-  const { bed } = store.store;
-  const cp = bed.fluid.heatCapacity(out_K);
-  const gas =
-    bed.end_volume_m3.charge_inlet * bed.fluid.density_kg_m3(plenum_K, bed.pressure_Pa) * cp;
-  return (bed.end_capacity_J_K.charge_inlet + gas) / (flow_kg_s * cp);
-}
-
-/**
- * How much later than it should [s] the plenum of `throughPlenum` shows a steadily changing outlet
- * that is known by its means over steps: (dt/2) coth(dt/(2 tau)) - tau, which is dt/2 without a
- * plenum and vanishes for one that is slow against the step.
- */
-function excessLag(
-  store: RolloutStore,
-  plenum_K: number,
-  out_K: number,
-  flow_kg_s: number,
-  dt_s: number,
-): number {
-  const tau = plenumTime(store, plenum_K, out_K, flow_kg_s);
-  return dt_s / 2 / Math.tanh(dt_s / (2 * tau)) - tau;
-}
-
-/** True once the gas and, by its heat, the steel at the outlet ends have been replaced twice. */
-function isSwept(
-  input: RolloutInput,
-  plenum_K: readonly number[],
-  sweptMass: readonly number[],
-  t: number,
-): boolean {
-  return input.stores.every((store, i) => {
-    const { bed } = store.store;
-    const capacity = bed.end_capacity_J_K.charge_inlet;
-    const volume = bed.end_volume_m3.charge_inlet;
-    if (capacity === 0 && volume === 0) return t > 0;
-    const temperature = plenum_K[i] as number;
-    const gas = volume * bed.fluid.density_kg_m3(temperature, bed.pressure_Pa);
-    const steel = capacity / bed.fluid.heatCapacity(temperature);
-    return (sweptMass[i] as number) > 2 * (gas + steel);
-  });
 }
 
 function worstDrop(
