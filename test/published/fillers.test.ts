@@ -153,6 +153,24 @@ describe('continuation below 298 K', () => {
     expect(Math.abs(mine / (table.enthalpy(300) - table.enthalpy(120)) - 1)).toBeLessThan(0.02);
   });
 
+  it('basalt: between two other published curves through measurements on basaltic rock', () => {
+    // J/gK, Winter & Saari, Astrophys. J. 156 (1969) 1135; cal/gK, Ledlow et al., Astrophys. J. 384
+    // (1992) 640; each over its own value at 298 K, for they are of other rock than the fit above.
+    const winter = (T: number) => -0.034 * Math.sqrt(T) + 0.008 * T - 0.0002 * T ** 1.5;
+    const ledlow = (T: number) => {
+      const y = T / 300 - 1;
+      return 0.1812 + y * (0.1191 + y * (0.0176 + y * (0.2721 + y * 0.1869)));
+    };
+    const { heatCapacity } = solidByName('basalt');
+    // To 2 % outside of the two, which differ among themselves by 2 to 6 %.
+    for (let T = 140; T < 298; T += 10) {
+      const ratio = heatCapacity(T) / heatCapacity(298.15);
+      const both = [winter(T) / winter(298.15), ledlow(T) / ledlow(298.15)];
+      expect(ratio).toBeGreaterThan(Math.min(...both) * 0.98);
+      expect(ratio).toBeLessThan(Math.max(...both) * 1.02);
+    }
+  });
+
   it('every rock about halves towards -150 degC, as is known of rock', () => {
     for (const name of ['granite', 'granite_rockville', 'basalt', 'basalt_nahhas', 'andesite']) {
       const solid = solidByName(name);

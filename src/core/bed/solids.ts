@@ -1,5 +1,5 @@
 import type { Solid } from '../definitions.js';
-import { solidFromPolynomial, solidFromTable } from './solidsBuild.js';
+import { type BelowRange, solidFromPolynomial, solidFromTable } from './solidsBuild.js';
 import { MAGNETITE_HEAT_CAPACITY, MAGNETITE_TEMPERATURES_K } from './solidsMagnetite.js';
 
 export {
@@ -56,6 +56,8 @@ interface RockFacts {
   readonly high_K: number;
   readonly density: number;
   readonly conductivity: number;
+  /** Default `silicate`. */
+  readonly below?: BelowRange;
 }
 
 function rock(name: string, f: RockFacts): Solid {
@@ -70,7 +72,7 @@ function rock(name: string, f: RockFacts): Solid {
     density_kg_m3: f.density,
     conductivity_W_mK: f.conductivity,
     emissivity: ROUGH_ROCK,
-    below: 'silicate',
+    below: f.below ?? 'silicate',
   });
 }
 
@@ -106,6 +108,7 @@ const SOLIDS: readonly Solid[] = [
     high_K: 1000,
     density: 2900,
     conductivity: 2,
+    below: 'mafic_rock',
   }),
   solidFromPolynomial({
     name: 'basalt_nahhas',
@@ -116,7 +119,7 @@ const SOLIDS: readonly Solid[] = [
     density_kg_m3: 2960,
     conductivity_W_mK: (temperature_K) => 1 / (0.4 - 2.68e-5 * Math.min(temperature_K, 973)),
     emissivity: ROUGH_ROCK,
-    below: 'silicate',
+    below: 'mafic_rock',
   }),
   rock('andesite', {
     source: USGS,

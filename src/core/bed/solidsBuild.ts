@@ -2,9 +2,10 @@ import type { Solid } from '../definitions.js';
 import { requireAscending, requireEfficiency, requirePositive } from '../misuse.js';
 import { integralOf, polynomial } from '../polynomial.js';
 import { type LowTemperatureShape, lowTemperatureForm } from './solidsLowTemperature.js';
+import { maficForm } from './solidsMafic.js';
 
-/** Below its range c_s keeps its end value, or follows the vibrations of the lattice. */
-export type BelowRange = 'end_value' | LowTemperatureShape;
+/** Below its range c_s keeps its end value, or follows the vibrations of the lattice or measured basalt. */
+export type BelowRange = 'end_value' | 'mafic_rock' | LowTemperatureShape;
 
 /** What every way of making a solid asks for. */
 export interface SolidFacts {
@@ -39,7 +40,11 @@ function solidOf(facts: SolidFacts, curve: Curve): Solid {
   const hHigh = curve.enthalpy(high);
   const below = facts.below ?? 'end_value';
   const lattice =
-    below === 'end_value' ? null : lowTemperatureForm(below, low, cLow, curve.slopeAtLow);
+    below === 'end_value'
+      ? null
+      : below === 'mafic_rock'
+        ? maficForm(low, cLow)
+        : lowTemperatureForm(below, low, cLow, curve.slopeAtLow);
   const hShift = lattice ? hLow - lattice.enthalpy(low) : 0;
   return Object.freeze({
     name: facts.name,
