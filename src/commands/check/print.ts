@@ -1,5 +1,5 @@
 import type { SiteConfig } from '../../config/site.js';
-import type { HalfCycle, HalfEnd } from './cycle.js';
+import type { HalfCycle, HalfEnd } from '../../core/cycle/settledCycle.js';
 import { siteNotes } from './siteNotes.js';
 import type { StoreFacts } from './storeFacts.js';
 import type { DirectionFacts, UnitFacts } from './unitFacts.js';

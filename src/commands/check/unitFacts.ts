@@ -1,7 +1,7 @@
+import { cyclePower_W, type SettledCycle, settledCycle } from '../../core/cycle/settledCycle.js';
 import type { Direction, StoreDefinition, UnitDefinition } from '../../core/definitions.js';
 import { createMachine, type Machine } from '../../core/machine/machine.js';
 import { ZERO_CELSIUS_K } from '../../core/units.js';
-import { cyclePower_W, type SettledCycle, settledCycle } from './cycle.js';
 import { type MissingChannel, missingChannels } from './missing.js';
 import { notesOf } from './notes.js';
 import { referenceOutlets } from './referenceOutlets.js';
