@@ -134,6 +134,71 @@ describe('the truth', () => {
     expect(move(-0.3)).toBeLessThan(move(0) - 0.005);
   });
 
+  it('leaks unseen through one store while it stands, and tells the truth only', () => {
+    const share = -0.01;
+    const leak = { kind: 'leak', at_s: H, store: 'hot', share } as const;
+    const move = (changes: TruthOptions['changes']) => {
+      const a = plant({ ...NOMINAL, initial: HALF_CHARGED, changes: changes ?? [] });
+      const before = a.run([{ mode: 'stand', duration_s: H }]).truths.at(-1)!.stores;
+      const { scans, truths } = a.run([{ mode: 'stand', duration_s: 10 * H }]);
+      const { stores } = truths.at(-1)!;
+      a.run([{ mode: 'discharge', flow_kg_s: 15, duration_s: 600 }]);
+      const running = a.truth().stores.hot!.leak_kg_s;
+      return { before, stores, readings: scans.at(-1)!.readings, running };
+    };
+    const [tight, leaking] = [move([]), move([leak])];
+    expect(leaking.before).toEqual(tight.before);
+    expect(leaking.readings.flow).toBe(0);
+    const flow = share * GEOMETRY.rated_flow_kg_s;
+    expect(leaking.stores.hot!.leak_kg_s).toBeCloseTo(flow, 12);
+    expect(leaking.running).toBe(0);
+    expect(leaking.stores.cold).toEqual(tight.stores.cold);
+    // Gas at 15 degC drives out gas at 460: 0.22 kg/s x 520 J/kgK x 10 h of it, less what the
+    // steel of lids and pipe keeps, 0.9 MJ/K twice warmed or cooled by 100 K at most.
+    const lost = tight.stores.hot!.stored_MWh_th - leaking.stores.hot!.stored_MWh_th;
+    const carried = (-flow * 520 * (460 - 15) * 10 * H) / 3.6e9;
+    expect(Math.abs(lost - carried)).toBeLessThan((2 * 0.9e6 * 100) / 3.6e9);
+  });
+
+  it('cools the pipe through which a leak comes in, from what the gas was to ambient', () => {
+    const changes = [{ kind: 'leak', at_s: 0, store: 'hot', share: 0.005 }] as const;
+    const a = plant({ ...NOMINAL, initial: HALF_CHARGED, changes });
+    a.run([{ mode: 'stand', duration_s: 60 }]);
+    // PIPE_CAPACITY over 0.11 kg/s x 520.3 J/kgK.
+    const tau_s = 0.9e6 / (0.005 * GEOMETRY.rated_flow_kg_s * 520.333);
+    const warm = (K: number) => (K - 288.15) / (460 + 273.15 - 288.15);
+    expect(warm(a.truth().stores.hot!.inlet_K!)).toBeCloseTo(Math.exp(-60 / tau_s), 3);
+    a.run([{ mode: 'stand', duration_s: 4 * H }]);
+    // At 7.9 bar cp is up to 1 % above that of the ideal gas: 0.4 x 0.9 x 1 %.
+    expect(warm(a.truth().stores.hot!.inlet_K!)).toBeCloseTo(Math.exp(-(4 * H + 60) / tau_s), 2);
+  });
+
+  it.each([
+    ['hot', 'hot_gas_top', 'hot_axis_01', 'hot_axis_02', 'hot_axis_14'],
+    ['cold', 'cold_gas_top', 'cold_rim_14', 'cold_rim_13', 'cold_rim_01'],
+  ])('hangs the top thermocouples of the %s store in gas once its rock has sunk', (...ids) => {
+    const [store, gas, top, next, far] = ids as [string, string, string, string, string];
+    const run = (changes: TruthOptions['changes']) => {
+      const a = plant({ ...NOMINAL, initial: HALF_CHARGED, changes: changes ?? [] });
+      const { scans } = a.run([
+        { mode: 'charge', flow_kg_s: 18, duration_s: H },
+        { mode: 'stand', duration_s: 6 * H },
+        { mode: 'discharge', flow_kg_s: 18, duration_s: H },
+      ]);
+      return { a, scans };
+    };
+    const sound = run([]);
+    const sunk = run([{ kind: 'settled', at_s: 1800, store, depth_m: 0.6 }]);
+    const at = (minute: number) => sunk.scans[minute]!.readings;
+    // Within its own lag, 180 s at most, and the noise of both, of the gas at that end.
+    expect(Math.abs(at(59)[top]! - at(59)[gas]!)).toBeLessThan(1);
+    expect(Math.abs(at(479)[top]! - at(479)[gas]!)).toBeLessThan(1);
+    expect(at(29)[top]).toBe(sound.scans[29]!.readings[top]);
+    for (const id of [next, far]) expect(at(479)[id]).toBe(sound.scans[479]!.readings[id]);
+    expect(sunk.a.truth()).toEqual(sound.a.truth());
+    expect(sunk.a.clone().stores[0]!.thermocouples.uncovered_m).toBe(store === 'hot' ? 0.6 : 0);
+  });
+
   it('turns a channelled string into its flow factor and keeps the flow', () => {
     const a = plant({
       ...NOMINAL,

@@ -16,7 +16,8 @@ import { join } from 'node:path';
 import { parseArgs } from 'node:util';
 import cliProgress from 'cli-progress';
 import { blocksOf } from './score/blocks.js';
-import { folder, keepFolders, resultHash, truthHash } from './score/folder.js';
+import { resultHash, truthHash } from './score/codeHash.js';
+import { folder, keepFolders } from './score/folder.js';
 import { type Job, resultOf } from './score/job.js';
 import { missesOf } from './score/known.js';
 import { runJobs } from './score/pool.js';
@@ -82,7 +83,7 @@ const fresh = freshCount > 0 ? freshSeeds(freshCount, Date.now()) : [];
 if (fresh.length > 0) console.log(`fresh seeds of this run: ${fresh.join(', ')}`);
 
 const started = performance.now();
-const hashes = { truth: truthHash(), result: resultHash() };
+const hashes = { truth: await truthHash(), result: await resultHash() };
 keepFolders('truth', hashes.truth, 1);
 keepFolders('results', hashes.result, 8);
 

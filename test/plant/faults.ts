@@ -13,23 +13,25 @@ export type SensorFault = { readonly at_s: number; readonly until_s?: number } &
   | { readonly kind: 'gap' }
 );
 
-/** What changes in the plant itself. */
-export type PlantChange = {
-  readonly at_s: number;
-} /** Heat-transfer factor goes from what it is to `factor` times its drawn value over `ramp_s`. */ & (
-  | {
+/** What changes in the plant itself, in one store. */
+export type PlantChange = { readonly at_s: number; readonly store: string } & (
+  | /** Heat-transfer factor goes from what it is to `factor` times its drawn value over `ramp_s`. */ {
       readonly kind: 'heat_transfer';
-      readonly store: string;
       readonly factor: number;
       readonly ramp_s?: number;
     }
   /** Flow of the tube that `string` stands for is multiplied, the others lose what it gains. */
-  | {
-      readonly kind: 'channelling';
-      readonly store: string;
-      readonly string: string;
-      readonly factor: number;
-    }
+  | { readonly kind: 'channelling'; readonly string: string; readonly factor: number }
+  /**
+   * While the unit stands, a valve lets `share` of the rated flow through the bed, positive as while
+   * charging. No meter sees it.
+   */
+  | { readonly kind: 'leak'; readonly share: number }
+  /**
+   * The rock has sunk away from the thermocouples within `depth_m` of the bed's top: they hang in the
+   * gas of that end. The rock that is there, and its heat, stay as they were.
+   */
+  | { readonly kind: 'settled'; readonly depth_m: number }
 );
 
 function active(fault: SensorFault, time_s: number): boolean {

@@ -30,6 +30,11 @@ export interface StoreGeometry {
   }[];
 }
 
+/** End of a bed that is its top: layers are stable with the warm end up. */
+export function topEnd(store: StoreGeometry): 0 | 1 {
+  return store.kind === 'hot' ? 0 : 1;
+}
+
 export interface GasCycleGeometry {
   readonly kind: 'gas_cycle';
   readonly high_pressure_Pa: number;

@@ -95,10 +95,7 @@ export class MachineRoom {
     this.enter(command.mode);
     const ambient = this.ambient_K();
     if (command.mode === 'stand') {
-      const leak = command.leak_kg_s ?? 0;
-      for (const store of this.stores) store.step(dt_s, leak, ambient, ambient);
-      this.flow_kg_s = leak;
-      this.power_W = this.geometry.machine.auxiliary_standing_W;
+      this.stand(command.leak_kg_s ?? 0, dt_s, ambient);
     } else {
       this.flowStep(command, dt_s, ambient);
     }
@@ -113,14 +110,26 @@ export class MachineRoom {
     this.flow_kg_s = 0;
   }
 
+  /** Rest, with what leaks through each store beside the flow that the meter sees. */
+  private stand(seen_kg_s: number, dt_s: number, ambient: number): void {
+    for (const store of this.stores) {
+      let share = 0;
+      for (const change of this.options.changes ?? []) {
+        const here = change.kind === 'leak' && change.store === store.geometry.id;
+        if (here && this.elapsed_s >= change.at_s) share += change.share;
+      }
+      store.stand(dt_s, seen_kg_s, share * this.geometry.rated_flow_kg_s, ambient);
+    }
+    this.flow_kg_s = seen_kg_s;
+    this.power_W = this.geometry.machine.auxiliary_standing_W;
+  }
+
   private flowStep(command: Segment, dt_s: number, ambient: number): void {
     const charging = command.mode === 'charge';
     const target = this.targetFlow(command, ambient);
     if (Number.isNaN(target)) {
       this.stoppedBy = 'empty';
-      for (const store of this.stores) store.step(dt_s, 0, ambient, ambient);
-      this.flow_kg_s = 0;
-      this.power_W = this.geometry.machine.auxiliary_standing_W;
+      this.stand(0, dt_s, ambient);
       return;
     }
     const before = Math.abs(this.flow_kg_s);
@@ -228,7 +237,9 @@ export class MachineRoom {
       const from = this.begun.get(change) ?? store.bed.heatTransferFactor;
       if (change.kind === 'channelling') {
         if (!this.begun.has(change)) store.channel(change.string, change.factor);
-      } else {
+      } else if (change.kind === 'settled') {
+        store.thermocouples.uncovered_m = change.depth_m;
+      } else if (change.kind === 'heat_transfer') {
         const to = change.factor * this.draw.stores[change.store]!.heat_transfer_factor;
         const ramp = Math.max(change.ramp_s ?? 0, 1e-9);
         const share = Math.min(1, (this.elapsed_s - change.at_s) / ramp);

@@ -1,6 +1,6 @@
 import type { Bed } from './bed.js';
 import { groupError, type PlantDraw, type ThermocoupleDraw } from './draws.js';
-import type { StoreGeometry } from './geometry.js';
+import { type StoreGeometry, topEnd } from './geometry.js';
 import type { RandomStream } from './random.js';
 
 /** White noise of one reading, 1 sigma. */
@@ -21,6 +21,8 @@ interface Place {
   /** The two cells of each of two rings that it lies between, and their weights. */
   readonly cells: readonly [number, number, number, number];
   readonly weights: readonly [number, number, number, number];
+  /** Below the bed's top [m]. */
+  readonly depth_m: number;
 }
 
 /** Thermocouples of one store: each sees a mixture of gas and rock, late by its thermowell. */
@@ -28,6 +30,8 @@ export class ThermocoupleArray {
   private readonly places: readonly Place[];
   /** Temperature of each junction [K]; NaN before the first step. */
   readonly junction: Float64Array;
+  /** Thermocouples this close to the bed's top hang in the gas above it [m]. */
+  uncovered_m = 0;
 
   constructor(
     store: StoreGeometry,
@@ -39,16 +43,21 @@ export class ThermocoupleArray {
     this.junction = from
       ? from.junction.slice()
       : new Float64Array(this.places.length).fill(Number.NaN);
+    this.uncovered_m = from?.uncovered_m ?? 0;
   }
 
-  follow(bed: Bed, dt_s: number): void {
+  /** @param topGas_K gas above the bed */
+  follow(bed: Bed, dt_s: number, topGas_K: number): void {
     const { gas, surface } = bed;
     for (let j = 0; j < this.places.length; j++) {
-      const { cells, weights, draw } = this.places[j]!;
+      const { cells, weights, draw, depth_m } = this.places[j]!;
       let seen = 0;
-      for (let c = 0; c < 4; c++) {
-        const k = cells[c]!;
-        seen += weights[c]! * (draw.gas_share * gas[k]! + (1 - draw.gas_share) * surface[k]!);
+      if (depth_m < this.uncovered_m) seen = topGas_K;
+      else {
+        for (let c = 0; c < 4; c++) {
+          const k = cells[c]!;
+          seen += weights[c]! * (draw.gas_share * gas[k]! + (1 - draw.gas_share) * surface[k]!);
+        }
       }
       const was = this.junction[j]!;
       this.junction[j] = Number.isNaN(was)
@@ -84,7 +93,8 @@ function placesOf(store: StoreGeometry, bed: Bed, draw: PlantDraw): Place[] {
       span > 0 ? Math.min(Math.max((string.radius_m - ringMiddle_m[ring]!) / span, 0), 1) : 0;
     return string.thermocouples.map((t): Place => {
       const own = draw.thermocouples[t.id]!;
-      const x = (t.position_m + own.position_error_m) / bed.c.cellLength_m - 0.5;
+      const position_m = t.position_m + own.position_error_m;
+      const x = position_m / bed.c.cellLength_m - 0.5;
       const held = Math.min(Math.max(x, 0), cells - 1);
       const cell = Math.min(Math.floor(held), cells - 2);
       const along = held - cell;
@@ -95,6 +105,7 @@ function placesOf(store: StoreGeometry, bed: Bed, draw: PlantDraw): Place[] {
         group: t.group,
         draw: own,
         cells: [a, a + 1, b, b + 1],
+        depth_m: topEnd(store) === 0 ? position_m : store.length_m - position_m,
         weights: [
           (1 - across) * (1 - along),
           (1 - across) * along,

@@ -12,7 +12,7 @@ export interface Segment {
   /** Net electrical power [W] or flow [kg/s]; neither while standing. */
   readonly power_W?: number;
   readonly flow_kg_s?: number;
-  /** While standing: flow through a valve that does not close, positive as while charging [kg/s]. */
+  /** While standing: flow through all stores that the meter sees, positive as while charging [kg/s]. */
   readonly leak_kg_s?: number;
 }
 

@@ -10,6 +10,8 @@ import type { RowResult } from './tally.js';
 export interface TruthPlan {
   readonly id: string;
   readonly machine: 'known' | 'random';
+  /** Scan period of the recording; SCAN_S if absent. */
+  readonly period_s?: number;
   readonly segments: (geometry: PlantGeometry, seed: number) => readonly Segment[];
   readonly changes?: (seed: number) => readonly PlantChange[];
   /** True hours are kept this often [min]; null = never. */

@@ -11,7 +11,7 @@ import { applyFaults, type SensorFault } from '../../test/plant/faults.js';
 import { StraightLines } from '../../test/score/straightLines.js';
 import type { Recording } from './recording.js';
 import type { ErrorModel } from './sensorSets.js';
-import { columnOf } from './truthPlant.js';
+import { columnOf } from './twins.js';
 
 /** What was estimated of one store, scan by scan; NaN where there is none. */
 export interface StoreSeries {

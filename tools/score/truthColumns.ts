@@ -11,6 +11,7 @@ const PER_STORE = [
   'fronts',
   ...Array.from({ length: FRONTS }, (_, i) => [`position_${i}`, `width_${i}`]).flat(),
   'heat_transfer_factor',
+  'leak_kg_s',
   'flow_axis',
   'flow_middle',
   'flow_rim',
@@ -37,7 +38,7 @@ export function truthRow(plant: Truth, truth: PlantTruth): number[] {
       const front = store.fronts[i];
       row.push(front?.position_m ?? Number.NaN, front?.width_m ?? Number.NaN);
     }
-    row.push(store.heat_transfer_factor);
+    row.push(store.heat_transfer_factor, store.leak_kg_s);
     for (const string of ['axis', 'middle', 'rim']) {
       row.push(store.strings.find((s) => s.id === string)!.flow_factor);
     }

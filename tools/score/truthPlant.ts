@@ -1,18 +1,14 @@
 import { DEMO_GEOMETRY } from '../../test/plant/demoGeometry.js';
-import type { PlantDraw } from '../../test/plant/draws.js';
 import {
   type PlantGeometry,
   type StoreGeometry,
   withReadOnlyString,
 } from '../../test/plant/geometry.js';
 import { type ErrorModel, SCAN_S, type SensorSet, unitWith } from './sensorSets.js';
+import { columnOf } from './twins.js';
 
-/** Name under which the truth reads a thermocouple with a given kind of errors. */
-export function columnOf(thermocouple: string, errors: ErrorModel): string {
-  return errors === 'class' ? `${thermocouple}${CLASS}` : thermocouple;
-}
+export { columnOf, withTwins } from './twins.js';
 
-const CLASS = '~class';
 const SETS: readonly SensorSet[] = ['all', 'five', 'three'];
 
 /**
@@ -21,10 +17,10 @@ const SETS: readonly SensorSet[] = ['all', 'five', 'three'];
  * other sets. Only the demonstration's own strings stand for area, so the physics are those of the
  * plain plant.
  */
-export function truthGeometry(): PlantGeometry {
+export function truthGeometry(period_s = SCAN_S): PlantGeometry {
   let geometry: PlantGeometry = {
     ...DEMO_GEOMETRY,
-    scan_period_s: SCAN_S,
+    scan_period_s: period_s,
     stores: DEMO_GEOMETRY.stores.map((store) => ({
       ...store,
       strings: store.strings.map((string) => renamed(string, 'independent')),
@@ -58,14 +54,4 @@ function renamed<T extends Pick<StringGeometry, 'id' | 'radius_m' | 'thermocoupl
       group: errors === 'class' ? t.group : null,
     })),
   };
-}
-
-/** Twins share thermowell, mixture and offset; only one of the two has the other errors. */
-export function withTwins(draw: PlantDraw): PlantDraw {
-  const thermocouples = { ...draw.thermocouples };
-  for (const [id, own] of Object.entries(draw.thermocouples)) {
-    if (id.endsWith(CLASS)) thermocouples[id] = draw.thermocouples[id.slice(0, -CLASS.length)]!;
-    else thermocouples[id] = { ...own, gain: 0, position_error_m: 0 };
-  }
-  return { ...draw, thermocouples };
 }

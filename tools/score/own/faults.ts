@@ -4,7 +4,7 @@ import type { RowPlan, Runner } from '../scenario.js';
 import { unitWith } from '../sensorSets.js';
 import { runSeries, type Series } from '../series.js';
 import { type RowResult, tally } from '../tally.js';
-import { columnOf } from '../truthPlant.js';
+import { columnOf } from '../twins.js';
 import {
   FAULT_H,
   FAULT_KINDS,
