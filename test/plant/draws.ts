@@ -131,11 +131,12 @@ function drawStore(store: StoreGeometry, seed: number, random: boolean): StoreDr
     };
   }
   const r = new RandomStream(seed, `store ${store.id}`);
-  // Rings differ by +/-3 %; the looser packing at the wall lets up to 5 % more through the last.
+  // Rings differ by +/-3 %; the looser packing at the wall lets through the last what up to 0.7
+  // particle diameters more of bed would pass (published profiles for spheres: about 0.6).
   const last = shares.length - 1;
-  const flow = shares.map(
-    (_, i) => 1 + r.boundedNormal(0.015) + (i === last ? r.uniform(0, 0.05) : 0),
-  );
+  const lastThickness_m = (store.diameter_m / 2) * (1 - Math.sqrt(1 - shares[last]!));
+  const excess = (r.uniform(0, 0.7) * store.particle_diameter_m) / lastThickness_m;
+  const flow = shares.map((_, i) => 1 + r.boundedNormal(0.015) + (i === last ? excess : 0));
   const mean = flow.reduce((sum, f, i) => sum + f * shares[i]!, 0);
   return {
     heat_capacity_factor: 1 + r.boundedNormal(0.015), // +/-3 %
