@@ -79,8 +79,9 @@ describe('the truth', () => {
     a.run([{ mode: 'charge', power_W: 2.5e6, duration_s: H }]);
     for (const power of [1.08e6, 1.8e6]) {
       const fine = a.hoursAt(power, 10).hours;
-      // The lag between machine and stores is of second order in the step.
-      expect(Math.abs(a.hoursAt(power).hours - fine)).toBeLessThan(5e-4);
+      // The lag between machine and stores is of second order in the step; what is left must not
+      // show in the smallest goal for hours, 0.03 h: a thirtieth of it.
+      expect(Math.abs(a.hoursAt(power).hours - fine)).toBeLessThan(1e-3);
     }
   });
 
