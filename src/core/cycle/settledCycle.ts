@@ -49,6 +49,7 @@ export interface CycleStep {
 export interface CycleOptions {
   readonly cells?: number;
   readonly step_s?: number;
+  readonly stand_step_s?: number;
   /** Time stood after each charge and each discharge [s], from the hours run in the last cycle. */
   readonly stand_s?: (running_h: number) => number;
   /** Called for each step of the last cycle. */
@@ -60,6 +61,7 @@ interface March {
   readonly machine: Machine;
   readonly beds: readonly Bed[];
   readonly step_s: number;
+  readonly stand_step_s: number;
   each: ((step: CycleStep) => void) | null;
 }
 
@@ -87,8 +89,9 @@ export function settledCycle(
   options: CycleOptions = {},
 ): SettledCycle {
   const { cells = 80, step_s = 60, stand_s = () => 0, each } = options;
+  const { stand_step_s = step_s } = options;
   const beds = unit.stores.map((store) => startBed(store, cells));
-  const march: March = { unit, machine, beds, step_s, each: null };
+  const march: March = { unit, machine, beds, step_s, stand_step_s, each: null };
   let stood_s = 0;
   let last: SettledCycle | null = null;
   for (let i = 0; i < CYCLES; i++) {
@@ -160,8 +163,8 @@ function run(march: March, direction: Direction): HalfCycle {
 }
 
 function stand(march: March, stand_s: number): void {
-  const { beds } = march;
-  const steps = Math.round(stand_s / march.step_s);
+  const { beds, stand_step_s } = march;
+  const steps = Math.round(stand_s / stand_step_s);
   for (let n = 0; n < steps; n++) {
     const outlet = new Map(beds.map((bed) => [bed.store.kind, standingOutlet_K(bed, 'discharge')]));
     step(march, {
@@ -169,7 +172,7 @@ function stand(march: March, stand_s: number): void {
       flow_kg_s: 0,
       inlets_K: beds.map((bed) => outlet.get(bed.store.kind)!),
       outlets: outletsOf(outlet),
-      dt_s: march.step_s,
+      dt_s: stand_step_s,
     });
   }
 }

@@ -1,3 +1,4 @@
+import { planSubsteps } from '../bed/kernel.js';
 import { type CycleStep, type SettledCycle, settledCycle } from '../cycle/settledCycle.js';
 import type { Mode } from '../definitions.js';
 import type { Conditions } from '../track/conditions.js';
@@ -32,8 +33,9 @@ export interface Course {
   readonly start: readonly (readonly Float64Array[])[];
 }
 
-/** Longest step of a course [s]: covariances change over hours, and steps are split where gas flows. */
-export const COURSE_STEP_S = 300;
+/** Longest steps of a course [s]: covariances change over hours. */
+const FLOWING_STEP_S = 300;
+const STANDING_STEP_S = 900;
 const HOUR_S = 3600;
 const DAY_H = 24;
 /** Stood at least after each charge and discharge [s]. */
@@ -56,7 +58,8 @@ export function cycleCourse(model: UnitModel): { course: Course; cycle: SettledC
   let start: Float64Array[][] = [];
   const cycle = settledCycle(unit, model.machine, {
     cells: unit.estimator.cells,
-    step_s: Math.max(COURSE_STEP_S, unit.scan_period_s),
+    step_s: flowingStep_s(model),
+    stand_step_s: Math.max(STANDING_STEP_S, unit.scan_period_s),
     stand_s: (running_h) => Math.max(LEAST_STAND_S, ((DAY_H - running_h) / 2) * HOUR_S),
     each: (step) => {
       if (steps.length === 0) {
@@ -76,6 +79,37 @@ export function cycleCourse(model: UnitModel): { course: Course; cycle: SettledC
     start,
   };
   return { course, cycle };
+}
+
+/**
+ * As many of the pieces that the bed's model takes at the greatest flow as fit in the longest step:
+ * a step a little longer than its last whole piece would cost one more.
+ */
+function flowingStep_s({ unit, machine, stores }: UnitModel): number {
+  let most = 0;
+  settledCycle(unit, machine, {
+    each: ({ flow_kg_s }) => {
+      most = Math.max(most, Math.abs(flow_kg_s));
+    },
+  });
+  const pieces = (dt_s: number): number =>
+    Math.max(
+      ...stores.map(({ store, tables }) =>
+        planSubsteps(tables, unit.estimator.cells, {
+          massFlux_kg_m2s: most / store.bed.area_m2,
+          inlet_K: store.reference_hot_K,
+          ambient_K: unit.ambient_K,
+          dt_s,
+          heatTransferFactor: 1,
+          wallLoss_W_m3K: 0,
+        }),
+      ),
+    );
+  let best = FLOWING_STEP_S;
+  for (let dt = FLOWING_STEP_S; dt >= FLOWING_STEP_S / 2; dt -= 10) {
+    if (dt / pieces(dt) > best / pieces(best)) best = dt;
+  }
+  return Math.max(best, unit.scan_period_s);
 }
 
 /** Through `driveOf`, so that an inlet without a sensor is as uncertain as when tracking. */
