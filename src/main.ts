@@ -5,10 +5,18 @@ import { closingHelp } from './commands/help.js';
 import { register as registerHours } from './commands/hours.js';
 import { register as registerReplay } from './commands/replay.js';
 import { packageVersion, register as registerRun } from './commands/run.js';
+import { register as registerSensors } from './commands/sensors.js';
 import { EXIT_CODES, exitCodeOf, explain, RockhourError } from './errors.js';
 
 /** In the order of the help. */
-const COMMANDS = [registerRun, registerDemo, registerReplay, registerHours, registerCheck];
+const COMMANDS = [
+  registerRun,
+  registerDemo,
+  registerReplay,
+  registerHours,
+  registerSensors,
+  registerCheck,
+];
 
 function fail(thrown: unknown): void {
   process.stderr.write(`${explain(thrown)}\n`);

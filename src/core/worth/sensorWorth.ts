@@ -267,7 +267,7 @@ function answerOf(store: StoreModel, variants: Variants, options: WorthOptions):
     return {
       store: spread,
       string: spreadOf(variant.string),
-      rise: all.soc_rms > 0 ? spread.soc_rms / all.soc_rms - 1 : 0,
+      rise: all.soc_sigma_rms > 0 ? spread.soc_sigma_rms / all.soc_sigma_rms - 1 : 0,
       most_in: variant.store.rise_in,
     };
   };

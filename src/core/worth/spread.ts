@@ -4,11 +4,11 @@ import type { FrontEstimate } from '../estimate.js';
 /** One sigma over the time that was weighed. */
 export interface Spread {
   /** State of charge [-]: root of the mean square over time, and the greatest. */
-  readonly soc_rms: number;
-  readonly soc_worst: number;
+  readonly soc_sigma_rms: number;
+  readonly soc_sigma_worst: number;
   /** Front position [m], over fronts that stand wholly in the bed; null where there was none. */
-  readonly front_rms_m: number | null;
-  readonly front_worst_m: number | null;
+  readonly position_sigma_rms_m: number | null;
+  readonly position_sigma_worst_m: number | null;
 }
 
 /** Sums from which a spread is made; changed in place by `tally`. */
@@ -67,9 +67,9 @@ export function spreadOf(sums: Tally): Spread {
   if (!(sums.time_s > 0)) throw new RangeError(`time_s = ${sums.time_s}: expected above 0`);
   const seen = sums.front_time_s > 0;
   return {
-    soc_rms: Math.sqrt(sums.soc / sums.time_s),
-    soc_worst: sums.soc_worst,
-    front_rms_m: seen ? Math.sqrt(sums.front / sums.front_time_s) : null,
-    front_worst_m: seen ? sums.front_worst_m : null,
+    soc_sigma_rms: Math.sqrt(sums.soc / sums.time_s),
+    soc_sigma_worst: sums.soc_worst,
+    position_sigma_rms_m: seen ? Math.sqrt(sums.front / sums.front_time_s) : null,
+    position_sigma_worst_m: seen ? sums.front_worst_m : null,
   };
 }
