@@ -3,7 +3,7 @@
  * lines between the thermocouples on the same recordings.
  *
  *   npm run score -- [--seeds 30] [--fresh 5] [--only nominal,gap] [--rows all-class] [--tuning]
- *     [--strict] [--quick] [--brief]
+ *     [--strict] [--quick] [--brief] [--truths-only] [--workers 2]
  *
  * Truths and results are kept in .score: a run that was stopped goes on where it was, and a run
  * after a change of the estimator needs no new truths. --tuning takes seeds 1, 2, ... instead of
@@ -16,7 +16,7 @@ import { join } from 'node:path';
 import { parseArgs } from 'node:util';
 import cliProgress from 'cli-progress';
 import { blocksOf } from './score/blocks.js';
-import { resultHash, truthHash } from './score/codeHash.js';
+import { resultHashes, truthHash } from './score/codeHash.js';
 import { folder, keepFolders } from './score/folder.js';
 import { type Job, resultOf } from './score/job.js';
 import { missesOf } from './score/known.js';
@@ -24,6 +24,7 @@ import { runJobs } from './score/pool.js';
 import { QUICK, SCENARIOS } from './score/scenarios.js';
 import { FIXED_FROM, freshSeeds, seedsDone } from './score/seeds.js';
 import { tableText } from './score/table.js';
+import { truthIsKept } from './score/truthOf.js';
 
 const { values } = parseArgs({
   options: {
@@ -35,6 +36,8 @@ const { values } = parseArgs({
     strict: { type: 'boolean', default: false },
     quick: { type: 'boolean', default: false },
     brief: { type: 'boolean', default: false },
+    'truths-only': { type: 'boolean', default: false },
+    workers: { type: 'string', default: '2' },
   },
 });
 
@@ -78,26 +81,49 @@ const fixed = Array.from(
   { length: count('seeds', values.seeds ?? (values.quick ? '2' : '30'), 1) },
   (_, i) => from + i,
 );
-const freshCount = values.tuning || values.quick ? 0 : count('fresh', values.fresh ?? '5', 0);
+const workers = count('workers', values.workers, 1);
+const freshCount =
+  values.tuning || values.quick || values['truths-only']
+    ? 0
+    : count('fresh', values.fresh ?? '5', 0);
 const fresh = freshCount > 0 ? freshSeeds(freshCount, Date.now()) : [];
 if (fresh.length > 0) console.log(`fresh seeds of this run: ${fresh.join(', ')}`);
 
 const started = performance.now();
-const hashes = { truth: await truthHash(), result: await resultHash() };
-keepFolders('truth', hashes.truth, 1);
-keepFolders('results', hashes.result, 8);
+const hashes = {
+  truth: await truthHash(),
+  results: await resultHashes(scenarios.map((s) => s.code)),
+};
+keepFolders('truth', [hashes.truth], 1);
+// Eight versions of all modules.
+keepFolders('results', Object.values(hashes.results), 8 * new Set(list.map((s) => s.code)).size);
+
+/** Makes the truths that are missing, one job for each, and ends. */
+async function onlyTruths(): Promise<never> {
+  const missing = new Map<string, Job>();
+  for (const { scenario, seed } of all) {
+    if (truthIsKept(scenario.truth, seed, hashes.truth)) continue;
+    missing.set(`${scenario.truth.id} ${seed}`, { scenario: scenario.id, seed, rows: [] });
+  }
+  const lost = await runJobs([...missing.values()], hashes, workers, () => undefined);
+  for (const { job, error } of lost) console.error(`${job.scenario} ${job.seed}: ${error}`);
+  const seconds = ((performance.now() - started) / 1000).toFixed(0);
+  console.log(`${missing.size - lost.length} truths made in ${seconds} s`);
+  process.exit(lost.length > 0 ? 1 : 0);
+}
 
 const all = scenarios.flatMap((scenario) =>
   [...fixed, ...fresh]
     .map((seed, place) => ({ scenario, seed, place }))
     .filter(({ place }) => place % scenario.every === 0),
 );
+if (values['truths-only']) await onlyTruths();
 // Seed by seed, so that a run that is stopped has all scenarios of some seeds.
 const jobs = [...all]
   .sort((a, b) => a.place - b.place)
   .map(({ scenario, seed }): Job => {
     const missing = scenario.rows.filter(
-      (row) => resultOf(scenario.id, row.id, seed, hashes.result) === null,
+      (row) => resultOf(scenario, row.id, seed, hashes) === null,
     );
     return { scenario: scenario.id, seed, rows: missing.map((row) => row.id) };
   })
@@ -111,7 +137,7 @@ const bar = process.stderr.isTTY
 bar?.start(all.length, all.length - jobs.length);
 /** Computing time by scenario [s]. */
 const cpu_s: Record<string, number> = {};
-const failures = await runJobs(jobs, hashes, (job, spent_s) => {
+const failures = await runJobs(jobs, hashes, workers, (job, spent_s) => {
   cpu_s[job.scenario] = (cpu_s[job.scenario] ?? 0) + spent_s;
   bar?.increment();
 });
@@ -124,8 +150,8 @@ const blocks = blocksOf(
   scenarios,
   (scenario, row) =>
     all
-      .filter((run) => run.scenario.id === scenario)
-      .map(({ seed }) => resultOf(scenario, row, seed, hashes.result))
+      .filter((run) => run.scenario === scenario)
+      .map(({ seed }) => resultOf(scenario, row, seed, hashes))
       .filter((result) => result !== null),
   fresh,
 );

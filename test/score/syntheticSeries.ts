@@ -1,6 +1,7 @@
 import { Recording } from '../../tools/score/recording.js';
 import { unitWith } from '../../tools/score/sensorSets.js';
 import type { Series, StoreSeries } from '../../tools/score/series.js';
+import { sound } from '../../tools/score/soundState.js';
 import { TRUTH_COLUMNS } from '../../tools/score/truthColumns.js';
 
 /** What is true and what is estimated of both stores at a scan. */
@@ -63,7 +64,8 @@ export function syntheticSeries(
     hours: [],
     rejections: [],
     not_finite: 0,
-    snapshot: null,
+    unsound: sound(),
+    snapshots: new Map(),
     ...more,
   };
 }

@@ -10,7 +10,7 @@ const ERROR_WORDS = { independent: 'independent offsets', class: 'errors of the 
 /** The table's blocks: one for each row of each scenario, and one over all runs together. */
 export function blocksOf(
   scenarios: readonly Scenario[],
-  resultsOf: (scenario: string, row: string) => readonly RowResult[],
+  resultsOf: (scenario: Scenario, row: string) => readonly RowResult[],
   fresh: readonly number[],
 ): Block[] {
   const blocks: Block[] = [];
@@ -19,7 +19,7 @@ export function blocksOf(
   let days = 0;
   for (const scenario of scenarios) {
     for (const row of scenario.rows) {
-      const results = resultsOf(scenario.id, row.id);
+      const results = resultsOf(scenario, row.id);
       if (results.length === 0) continue;
       broken += results.reduce((sum, r) => sum + r.not_finite, 0);
       if (scenario.healthy) {

@@ -25,13 +25,16 @@ export async function codeHash(module: string): Promise<string> {
 /** What a truth depends on, its plan aside: the finer plant and what reads it. */
 export const truthHash = (): Promise<string> => codeHash('tools/score/makeTruth.ts');
 
-/** What a result depends on: the truth, the estimator, its configuration and the scoring. */
-export async function resultHash(): Promise<string> {
-  const hash = createHash('sha256');
-  for (const module of ['makeTruth', 'job'])
-    hash.update(await codeHash(`tools/score/${module}.ts`));
-  return hash
-    .update(readFileSync(join(root, 'config/demo.yaml')))
-    .digest('hex')
-    .slice(0, 12);
+/**
+ * What the results of scenarios depend on, by their module in own/: the estimator, the scoring, the
+ * scenarios of that module, the truth and the configuration. Other scenarios are no part of it.
+ */
+export async function resultHashes(modules: Iterable<string>): Promise<Record<string, string>> {
+  const common = (await truthHash()) + readFileSync(join(root, 'config/demo.yaml'), 'utf8');
+  const found: Record<string, string> = {};
+  for (const module of new Set(modules)) {
+    const own = await codeHash(`tools/score/own/${module}.ts`);
+    found[module] = createHash('sha256').update(common).update(own).digest('hex').slice(0, 12);
+  }
+  return found;
 }

@@ -2,27 +2,26 @@ import { type ChildProcess, fork } from 'node:child_process';
 import { fileURLToPath } from 'node:url';
 import type { Hashes, Job } from './job.js';
 
-const WORKERS = 2;
-
 /**
- * Runs jobs in two processes. A job that fails is told and counted; the others go on.
+ * Runs jobs in some processes. A job that fails is told and counted; the others go on.
  * @returns the failures
  */
 export async function runJobs(
   jobs: readonly Job[],
   hashes: Hashes,
+  workers: number,
   done: (job: Job, cpu_s: number) => void,
 ): Promise<{ job: Job; error: string }[]> {
   const waiting = [...jobs];
   const failures: { job: Job; error: string }[] = [];
-  const workers = Array.from({ length: Math.min(WORKERS, jobs.length) }, () =>
+  const running = Array.from({ length: Math.min(workers, jobs.length) }, () =>
     work(waiting, hashes, (job, cpu_s, error) => {
       if (error !== undefined) failures.push({ job, error });
       done(job, cpu_s);
     }),
   );
-  await Promise.all(workers);
-  // Only where both processes have ended before their time.
+  await Promise.all(running);
+  // Only where all processes have ended before their time.
   for (const job of waiting) failures.push({ job, error: 'not run: no process was left for it' });
   return failures;
 }

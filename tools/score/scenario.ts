@@ -25,6 +25,8 @@ export interface RowPlan {
   readonly errors: ErrorModel;
   /** What sets this row apart from others with the same sensors. */
   readonly words?: string;
+  /** Figures without goals, where too little is read for those of the sensor set. */
+  readonly plain?: true;
 }
 
 /** Runs some rows of a scenario on one recording. */
@@ -36,6 +38,8 @@ export type Runner = (
 
 export interface Scenario {
   readonly id: string;
+  /** Name of its module in own/: its results are kept for as long as that does the same. */
+  readonly code: string;
   readonly words: string;
   readonly truth: TruthPlan;
   /** Only every so many seeds run it; 1 = all. */

@@ -11,6 +11,7 @@ import { applyFaults, type SensorFault } from '../../test/plant/faults.js';
 import { StraightLines } from '../../test/score/straightLines.js';
 import type { Recording } from './recording.js';
 import type { ErrorModel } from './sensorSets.js';
+import { lookAt, sound, type Unsound } from './soundState.js';
 import { columnOf } from './twins.js';
 
 /** What was estimated of one store, scan by scan; NaN where there is none. */
@@ -58,7 +59,15 @@ export interface Series {
   readonly rejections: readonly Rejection[];
   /** Estimates with a figure that is not a finite number. */
   readonly not_finite: number;
-  readonly snapshot: UnitSnapshot | null;
+  readonly unsound: Unsound;
+  /** States kept, by the scan before which they were. */
+  readonly snapshots: ReadonlyMap<number, UnitSnapshot>;
+}
+
+/** What reaches the estimator with a scan, SI units; `held` as in Scan. */
+export interface Reading {
+  readonly values: Float64Array;
+  readonly held: Uint8Array;
 }
 
 export interface RunOptions {
@@ -66,8 +75,12 @@ export interface RunOptions {
   readonly faults?: readonly SensorFault[];
   readonly from?: { readonly scan: number; readonly snapshot: UnitSnapshot };
   readonly to?: number;
-  /** Scan before which the state is kept in `snapshot`. */
-  readonly keep?: number;
+  /** Scans before which the state is kept in `snapshots`. */
+  readonly keep?: readonly number[];
+  /** What the estimator takes for the time of a scan is later than in the recording by this [ms]. */
+  readonly shift_ms?: number;
+  /** What becomes of a reading on its way, called scan by scan; null where there is no scan. */
+  readonly through?: (reading: Reading, scan: number) => Reading | null;
   /** Whether hours are asked where the truth knows them. */
   readonly hours: boolean;
 }
@@ -91,19 +104,27 @@ export function runSeries(unit: UnitDefinition, recording: Recording, options: R
   const open = new Map<string, Rejection>();
   const rejections: Rejection[] = [];
   let notFinite = 0;
-  let snapshot: UnitSnapshot | null = null;
+  const unsound = sound();
+  const snapshots = new Map<number, UnitSnapshot>();
+  let last = from - 1;
   for (let n = from; n < to; n++) {
-    if (n === options.keep) snapshot = saveUnit(state);
-    const values = read(n);
+    if (options.keep?.includes(n)) snapshots.set(n, saveUnit(state));
+    const found = read(n);
+    const plain = { values: found, held: new Uint8Array(found.length) };
+    const reading = options.through ? options.through(plain, n) : plain;
+    if (reading === null) continue;
     const asked = options.hours ? (known.get(n) ?? []) : [];
-    const scan = { time_ms: recording.time_ms(n), values, held: new Uint8Array(values.length) };
+    const scan = { time_ms: recording.time_ms(n) + (options.shift_ms ?? 0), ...reading };
     const powers = asked.map((a) => a.power_W);
     const { estimate } = advance(unit, state, scan, { hours_at_W: powers, profile: false });
-    lines.take(values, period_s);
+    lines.take(reading.values, (n - last) * period_s);
+    const before = last;
+    last = n;
+    lookAt(state, n, unsound);
     if (!finite(estimate)) notFinite++;
     for (const [id, store] of Object.entries(estimate.stores)) {
       note(stores[id]!, n, store, lines.soc(id));
-      noteRejections(open, rejections, id, store, n);
+      noteRejections(open, rejections, id, store, n, before);
     }
     asked.forEach((a, i) => {
       const { p90, p50, p10 } = estimate.dispatch![i]!.hours;
@@ -111,7 +132,18 @@ export function runSeries(unit: UnitDefinition, recording: Recording, options: R
       hours.push({ scan: n, power_W: a.power_W, truth_h: a.hours, p90, p50, p10, line_h });
     });
   }
-  return { unit, recording, from, to, stores, hours, rejections, not_finite: notFinite, snapshot };
+  return {
+    unit,
+    recording,
+    from,
+    to,
+    stores,
+    hours,
+    rejections,
+    not_finite: notFinite,
+    unsound,
+    snapshots,
+  };
 }
 
 /** Readings of the unit's channels at a scan, with the faults of the run. */
@@ -177,11 +209,12 @@ function noteRejections(
   id: string,
   store: StoreEstimate,
   n: number,
+  before: number,
 ): void {
   for (const { id: sensor, verdict } of store.sensors.rejected) {
     const key = `${sensor} ${verdict}`;
     const known = open.get(key);
-    if (known && known.to === n) known.to = n + 1;
+    if (known && known.to === before + 1) known.to = n + 1;
     else {
       const rejection = { store: id, sensor, verdict, from: n, to: n + 1 };
       open.set(key, rejection);

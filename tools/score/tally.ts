@@ -1,4 +1,5 @@
 import type { Series } from './series.js';
+import type { Unsound } from './soundState.js';
 
 /** Sum of errors of one figure, with the worst and where it was. */
 export interface Sum {
@@ -59,6 +60,9 @@ export interface RowResult {
   readonly fronts: { readonly unmatched: number; readonly all: number };
   readonly rejections: readonly { sensor: string; verdict: string; from_h: number; to_h: number }[];
   readonly not_finite: number;
+  readonly unsound: Unsound;
+  /** Scans that were taken in. */
+  readonly scans: number;
   /** Figures of the scenario's own; null where the run has none. */
   readonly own: Readonly<Record<string, number | null>>;
 }
@@ -84,6 +88,7 @@ export function tally(series: Series, seed: number, own: RowResult['own'] = {}):
   for (const [id, store] of Object.entries(series.stores)) {
     const truth = (name: string, n: number) => recording.truth(`${id}.${name}`, n);
     for (let n = first; n < series.to; n++) {
+      if (Number.isNaN(store.soc[n])) continue;
       const at = () => `seed ${seed} ${id} ${hourOf(n).toFixed(2)} h`;
       const add = (name: string, error: number) => {
         addError(sumOf(sums, name), error, at);
@@ -92,6 +97,7 @@ export function tally(series: Series, seed: number, own: RowResult['own'] = {}):
       const soc = truth('soc', n);
       const error = store.soc[n]! - soc;
       add('soc', 100 * error);
+      add('soc/seen', 100 * (store.soc[n]! - truth(seen, n)));
       add('soc/sigma', error / store.soc_sigma[n]!);
       add('line soc', 100 * (store.line_soc[n]! - soc));
       add('seen soc', 100 * (truth(seen, n) - soc));
@@ -145,6 +151,8 @@ export function tally(series: Series, seed: number, own: RowResult['own'] = {}):
       to_h: hourOf(r.to),
     })),
     not_finite: series.not_finite,
+    unsound: series.unsound,
+    scans: Object.values(series.stores)[0]!.soc.filter((v) => !Number.isNaN(v)).length,
     own,
   };
 }

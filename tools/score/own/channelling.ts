@@ -1,13 +1,16 @@
 import type { PlantChange } from '../../../test/plant/faults.js';
+import { base, cycle, row } from '../base.js';
 import { type Figure, figure, ownValues, rms, worst } from '../figure.js';
+import type { Scenario } from '../scenario.js';
 import type { Series } from '../series.js';
 import type { RowResult } from '../tally.js';
-import { meanFlow } from './meterStep.js';
+import { meanFlow } from './meanFlow.js';
+import { plain } from './plain.js';
 
 const STRINGS = ['axis', 'middle', 'rim'] as const;
 
 /** One string of each store takes more than its share from the start, another one per seed and store. */
-export function channel(share: number): (seed: number) => PlantChange[] {
+function channel(share: number): (seed: number) => PlantChange[] {
   return (seed) =>
     (['hot', 'cold'] as const).map((store, s) => ({
       kind: 'channelling',
@@ -23,7 +26,7 @@ export function channel(share: number): (seed: number) => PlantChange[] {
  * What a tube gets is compared with the mean of its store, since a meter's error or a wrong heat
  * capacity moves all tubes alike and cannot be told from the fronts.
  */
-export function channellingOwn(series: Series): RowResult['own'] {
+function channellingOwn(series: Series): RowResult['own'] {
   const own: Record<string, number> = {};
   for (const store of series.unit.stores) {
     const errors: number[] = [];
@@ -43,7 +46,7 @@ export function channellingOwn(series: Series): RowResult['own'] {
 /** End of the first charge [h]. */
 const SETTLED_H = 5;
 
-export function channellingFigures(results: readonly RowResult[]): Figure[] {
+function channellingFigures(results: readonly RowResult[]): Figure[] {
   const all = (name: string) =>
     ['hot', 'cold'].flatMap((id) => ownValues(results, `${name} ${id}`));
   return [
@@ -54,3 +57,22 @@ export function channellingFigures(results: readonly RowResult[]): Figure[] {
     figure('  the same, rms', rms(all('flow rms')), ''),
   ];
 }
+
+export const CHANNELLING: readonly Scenario[] = [5, 10, 22].map((percent) => ({
+  ...base,
+  id: `channel-${percent}`,
+  code: 'channelling',
+  words: `channelling of ${percent} %`,
+  truth: {
+    id: `channel-${percent}`,
+    machine: 'random',
+    segments: cycle,
+    changes: channel(percent / 100),
+    hours_every_min: null,
+  },
+  rows: [row('all', 'independent')],
+  run: plain(false, channellingOwn),
+  figures: (_, results) => channellingFigures(results),
+  hours: false,
+  goals: { soc_rms: 0.2 },
+}));

@@ -1,6 +1,7 @@
+import { base, cycle, day } from '../base.js';
 import { type Figure, figure, median, ownValues, worst } from '../figure.js';
 import type { Recording } from '../recording.js';
-import type { RowPlan, Runner } from '../scenario.js';
+import type { RowPlan, Runner, Scenario } from '../scenario.js';
 import { unitWith } from '../sensorSets.js';
 import { runSeries, type Series } from '../series.js';
 import { type RowResult, tally } from '../tally.js';
@@ -14,7 +15,7 @@ import {
 } from './faultKinds.js';
 
 /** A row for each kind of fault. */
-export const FAULT_ROWS: readonly RowPlan[] = FAULT_KINDS.map((kind) => ({
+const FAULT_ROWS: readonly RowPlan[] = FAULT_KINDS.map((kind) => ({
   id: kind.id,
   set: 'all',
   errors: 'class',
@@ -25,15 +26,15 @@ export const FAULT_ROWS: readonly RowPlan[] = FAULT_KINDS.map((kind) => ({
  * One sound run, and from its state at the moment of the fault one run for each kind.
  * @param end_h how long the faults are followed
  */
-export const runFaults =
+const runFaults =
   (end_h: number): Runner =>
   (recording, seed, rows) => {
     const scan = FAULT_H * 60;
     const unit = unitWith('all', 'class');
     const to = end_h * 60;
     const common = { errors: 'class', hours: false, to } as const;
-    const healthy = runSeries(unit, recording, { ...common, keep: scan });
-    const from = { scan, snapshot: healthy.snapshot! };
+    const healthy = runSeries(unit, recording, { ...common, keep: [scan] });
+    const from = { scan, snapshot: healthy.snapshots.get(scan)! };
     return Object.fromEntries(
       rows.map((row) => {
         const kind = FAULT_KINDS.find((k) => k.id === row.id)!;
@@ -122,7 +123,7 @@ function visibleAt(
   return null;
 }
 
-export function faultFigures(_: RowPlan, results: readonly RowResult[]): Figure[] {
+function faultFigures(_: RowPlan, results: readonly RowResult[]): Figure[] {
   const part = (name: string) => {
     const values = ownValues(results, name);
     const hits = values.reduce((a, b) => a + b, 0);
@@ -153,3 +154,32 @@ export function faultFigures(_: RowPlan, results: readonly RowResult[]): Figure[
     figure('  against the truth, worst', worst(ownValues(results, 'error')), '%'),
   ];
 }
+
+const common = {
+  ...base,
+  code: 'faults',
+  words: 'sensor fault',
+  figures: faultFigures,
+  hours: false,
+  healthy: false,
+  goals: 'none',
+} as const;
+
+export const FAULTS: Scenario = {
+  ...common,
+  id: 'faults',
+  truth: day('random'),
+  rows: FAULT_ROWS,
+  // To the end of the first discharge.
+  run: runFaults(12.5),
+};
+
+const QUICK_KINDS = ['open', 'stuck', 'offset', 'swapped', 'card'];
+
+export const QUICK_FAULTS: Scenario = {
+  ...common,
+  id: 'quick-faults',
+  truth: { id: 'quick-cycle', machine: 'random', segments: cycle, hours_every_min: 120 },
+  rows: FAULT_ROWS.filter((r) => QUICK_KINDS.includes(r.id)),
+  run: runFaults(7.5),
+};

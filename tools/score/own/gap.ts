@@ -1,25 +1,28 @@
+import type { PlantGeometry } from '../../../test/plant/geometry.js';
+import type { Segment } from '../../../test/plant/truth.js';
+import { base, H, row } from '../base.js';
 import { type Figure, figure, median, ownValues, worst } from '../figure.js';
-import type { Runner } from '../scenario.js';
+import type { Runner, Scenario } from '../scenario.js';
 import { unitWith } from '../sensorSets.js';
 import { runSeries } from '../series.js';
 import { type RowResult, tally } from '../tally.js';
 
 /** Nothing arrives between these hours; see the schedule for what happens meanwhile. */
-export const GAP_H = [3, 6.5] as const;
+const GAP_H = [3, 6.5] as const;
 const SCANS_AFTER = 10;
 const NEAR = 0.005;
 
 /** All channels silent for 3.5 h that begin while charging and hide a change of mode. */
-export const runGap: Runner = (recording, seed, rows) =>
+const runGap: Runner = (recording, seed, rows) =>
   Object.fromEntries(
-    rows.map((row) => {
-      const unit = unitWith(row.set, row.errors);
+    rows.map((plan) => {
+      const unit = unitWith(plan.set, plan.errors);
       // Scan n is read at (n + 1) min: the first that is missing, and the first that is there again.
       const [from, to] = GAP_H.map((h) => h * 60 - 1) as [number, number];
       const tenth = to + SCANS_AFTER - 1;
       const gap = { kind: 'gap', at_s: GAP_H[0] * 3600, until_s: GAP_H[1] * 3600 } as const;
       const series = runSeries(unit, recording, {
-        errors: row.errors,
+        errors: plan.errors,
         hours: false,
         faults: [gap],
       });
@@ -38,14 +41,14 @@ export const runGap: Runner = (recording, seed, rows) =>
         const back = range(to, series.to).find((n) => Math.abs(error(n)) < NEAR);
         own[`scans to 0.5 % ${id}`] = (back ?? series.to) - to + 1;
       }
-      return [row.id, tally(series, seed, own)];
+      return [plan.id, tally(series, seed, own)];
     }),
   );
 
 const range = (from: number, to: number): number[] =>
   Array.from({ length: to - from }, (_, i) => from + i);
 
-export function gapFigures(independent: boolean, results: readonly RowResult[]): Figure[] {
+function gapFigures(independent: boolean, results: readonly RowResult[]): Figure[] {
   const all = (name: string) =>
     ['hot', 'cold'].flatMap((id) => ownValues(results, `${name} ${id}`));
   const after = all('error after');
@@ -66,3 +69,30 @@ export function gapFigures(independent: boolean, results: readonly RowResult[]):
     figure('  scans until below 0.5 %, worst', worst(all('scans to 0.5 %')), ''),
   ];
 }
+
+/**
+ * Four hours of charge, of which the last is unseen, and an unseen discharge; the gap ends while the
+ * unit stands with even seeds and while it still discharges with odd ones.
+ */
+const gap = ({ rated_power_W: P }: PlantGeometry, seed: number): Segment[] => {
+  const discharge_h = seed % 2 === 0 ? 2 : 3;
+  return [
+    { mode: 'charge', power_W: 1.5 * P, duration_s: 4 * H },
+    { mode: 'discharge', power_W: P, duration_s: discharge_h * H },
+    { mode: 'stand', duration_s: (3 - discharge_h + 0.5) * H },
+    { mode: 'charge', power_W: 1.3 * P, duration_s: 2.5 * H },
+  ];
+};
+
+export const GAP: Scenario = {
+  ...base,
+  id: 'gap',
+  code: 'gap',
+  words: 'gap of 3.5 h, unseen change of mode',
+  truth: { id: 'gap', machine: 'random', segments: gap, hours_every_min: null },
+  rows: [row('all', 'independent'), row('five', 'independent'), row('all', 'class')],
+  run: runGap,
+  figures: ({ errors }, results) => gapFigures(errors === 'independent', results),
+  hours: false,
+  goals: 'none',
+};

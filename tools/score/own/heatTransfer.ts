@@ -1,16 +1,19 @@
 import type { PlantChange } from '../../../test/plant/faults.js';
+import { base, cycle, row } from '../base.js';
 import { type Figure, figure, median, ownValues, rms, worst } from '../figure.js';
+import type { Scenario } from '../scenario.js';
 import type { Series } from '../series.js';
 import type { RowResult } from '../tally.js';
+import { plain } from './plain.js';
 
 /** Heat transfer of both stores is this share of what was drawn, from the start. */
-export function poorTransfer(factor: number): () => PlantChange[] {
+function poorTransfer(factor: number): () => PlantChange[] {
   return () =>
     (['hot', 'cold'] as const).map((store) => ({ kind: 'heat_transfer', at_s: 0, store, factor }));
 }
 
 /** Heat-transfer factors at the end against the truth. */
-export function heatTransferOwn(series: Series): RowResult['own'] {
+function heatTransferOwn(series: Series): RowResult['own'] {
   const own: Record<string, number> = {};
   const n = series.to - 1;
   for (const [id, store] of Object.entries(series.stores)) {
@@ -23,7 +26,7 @@ export function heatTransferOwn(series: Series): RowResult['own'] {
   return own;
 }
 
-export function heatTransferFigures(results: readonly RowResult[]): Figure[] {
+function heatTransferFigures(results: readonly RowResult[]): Figure[] {
   const all = (name: string) =>
     ['hot', 'cold'].flatMap((id) => ownValues(results, `${name} ${id}`));
   const sigmas = all('sigmas');
@@ -46,3 +49,22 @@ export function heatTransferFigures(results: readonly RowResult[]): Figure[] {
     figure('  the same, median', median(all('sigma share')), '%'),
   ];
 }
+
+export const HEAT_TRANSFER: readonly Scenario[] = [70, 50, 16].map((percent) => ({
+  ...base,
+  id: `transfer-${percent}`,
+  code: 'heatTransfer',
+  words: `heat transfer at ${percent} %`,
+  truth: {
+    id: `transfer-${percent}`,
+    machine: 'random',
+    segments: cycle,
+    changes: poorTransfer(percent / 100),
+    hours_every_min: null,
+  },
+  rows: [row('all', 'independent')],
+  run: plain(false, heatTransferOwn),
+  figures: (_, results) => heatTransferFigures(results),
+  hours: false,
+  goals: 'none',
+}));

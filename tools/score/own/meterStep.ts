@@ -1,8 +1,10 @@
+import { base, day, row } from '../base.js';
 import { type Figure, figure, ownValues, rms, worst } from '../figure.js';
-import type { Runner } from '../scenario.js';
+import type { Runner, Scenario } from '../scenario.js';
 import { unitWith } from '../sensorSets.js';
 import { runSeries, type Series } from '../series.js';
 import { type RowResult, tally } from '../tally.js';
+import { meanFlow } from './meanFlow.js';
 
 const FACTOR = 0.93;
 /** While standing after the first charge of the day [h]. */
@@ -12,12 +14,12 @@ const BEFORE_H = [5, 6] as const;
 const AFTER_H = [15, 16] as const;
 
 /** The flow meter reads 7 % less from one moment on. */
-export const runMeterStep: Runner = (recording, seed, rows) =>
+const runMeterStep: Runner = (recording, seed, rows) =>
   Object.fromEntries(
-    rows.map((row) => {
-      const unit = unitWith(row.set, row.errors);
+    rows.map((plan) => {
+      const unit = unitWith(plan.set, plan.errors);
       const series = runSeries(unit, recording, {
-        errors: row.errors,
+        errors: plan.errors,
         hours: true,
         faults: [{ kind: 'meter_step', at_s: STEP_H * 3600, factor: FACTOR }],
       });
@@ -25,7 +27,7 @@ export const runMeterStep: Runner = (recording, seed, rows) =>
       for (const store of unit.stores) {
         own[`step ${store.id}`] = 100 * (foundStep(series, store.id) / (1 / FACTOR) - 1);
       }
-      return [row.id, tally(series, seed, own)];
+      return [plan.id, tally(series, seed, own)];
     }),
   );
 
@@ -44,14 +46,7 @@ function foundStep(series: Series, id: string): number {
   return mean(AFTER_H) / mean(BEFORE_H);
 }
 
-/** Area-weighted mean of the flow factors of a store. */
-export function meanFlow(series: Series, id: string, n: number): number {
-  const store = series.unit.stores.find((s) => s.id === id)!;
-  const { flow } = series.stores[id]!;
-  return store.strings.reduce((sum, string, k) => sum + string.area_share * flow[k]![n]!, 0);
-}
-
-export function meterStepFigures(results: readonly RowResult[]): Figure[] {
+function meterStepFigures(results: readonly RowResult[]): Figure[] {
   const errors = ['hot', 'cold'].flatMap((id) => ownValues(results, `step ${id}`));
   return [
     figure('step found after one cycle, worst error', worst(errors), '%', {
@@ -61,3 +56,15 @@ export function meterStepFigures(results: readonly RowResult[]): Figure[] {
     figure('  the same, rms', rms(errors), '%'),
   ];
 }
+
+export const METER_STEP: Scenario = {
+  ...base,
+  id: 'meter-step',
+  code: 'meterStep',
+  words: 'flow meter -7 % from 7 h on',
+  truth: day('random'),
+  rows: [row('all', 'class'), row('five', 'class')],
+  run: runMeterStep,
+  figures: (_, results) => meterStepFigures(results),
+  goals: 'none',
+};
