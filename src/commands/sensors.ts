@@ -1,6 +1,7 @@
 import { setImmediate } from 'node:timers/promises';
 import type { Command } from 'commander';
 import type { UnitDefinition } from '../core/definitions.js';
+import type { StoreModel } from '../core/track/storeTracker.js';
 import { type UnitModel, unitModel } from '../core/unitModel.js';
 import { type Course, cycleCourse } from '../core/worth/course.js';
 import { courseOf, LEAST_COURSE_S, recordCourse, takeScan } from '../core/worth/recordedCourse.js';
@@ -72,7 +73,7 @@ async function weigh(
   const interrupt = new Interrupt();
   interrupt.start();
   try {
-    const run = weighSensors(model, s, course, { places, out_of_use });
+    const run = weighSensors(model.stores[s] as StoreModel, s, course, { places, out_of_use });
     let turned_ms = performance.now();
     for (;;) {
       const next = run.next();

@@ -14,7 +14,7 @@ export interface CourseStep {
   readonly mode: Mode;
   /** What moves each store's tubes. */
   readonly drives: readonly TubeDrive[];
-  /** Scans of readings taken in at the end of the step. */
+  /** Scans of readings taken in at the end of the step; 0 = none yet, or none came. */
   readonly scans: number;
   /** Mean of each store's tubes after the step; absent where the model alone moves it. */
   readonly means?: readonly (readonly TubeMean[])[];
@@ -33,9 +33,10 @@ export interface Course {
   readonly start: readonly (readonly Float64Array[])[];
 }
 
-/** Longest steps of a course [s]: covariances change over hours. */
+/** Longest steps of a course [s], and how often readings are taken in: covariances change over hours. */
 const FLOWING_STEP_S = 300;
 const STANDING_STEP_S = 900;
+const READ_EVERY_S = 300;
 const HOUR_S = 3600;
 const DAY_H = 24;
 /** Stood at least after each charge and discharge [s]. */
@@ -49,8 +50,8 @@ const SETTLING_CYCLES = 1;
  * The course of a settled daily cycle at the greatest charging and the rated discharging power,
  * between the rules that end them; what is left of the day is stood, half after each.
  *
- * Scans arrive at the unit's period, so a step of dt takes dt/period of them in at its end: their
- * white noise is averaged, what moves slowly between is not.
+ * Scans arrive at the unit's period, so after a time t the readings of t/period scans are taken in
+ * at once: their white noise is averaged, what moves slowly between is not.
  */
 export function cycleCourse(model: UnitModel): { course: Course; cycle: SettledCycle } {
   const { unit } = model;
@@ -73,12 +74,27 @@ export function cycleCourse(model: UnitModel): { course: Course; cycle: SettledC
   const cycles = BEFORE_CYCLES + SETTLING_CYCLES + 1;
   const course: Course = {
     source: 'cycle',
-    steps: Array.from({ length: cycles }, () => steps).flat(),
+    steps: Array.from({ length: cycles }, () => readSeldom(steps)).flat(),
     loss_at: BEFORE_CYCLES * steps.length,
     weigh_from: (BEFORE_CYCLES + SETTLING_CYCLES) * steps.length,
     start,
   };
   return { course, cycle };
+}
+
+/** Takes readings in no more often than `READ_EVERY_S`, and at the end of each phase. */
+function readSeldom(steps: readonly CourseStep[]): CourseStep[] {
+  let waiting_s = 0;
+  let scans = 0;
+  return steps.map((step, n): CourseStep => {
+    waiting_s += step.drives[0]?.dt_s ?? 0;
+    scans += step.scans;
+    if (waiting_s < READ_EVERY_S && steps[n + 1]?.mode === step.mode) return { ...step, scans: 0 };
+    const read = { ...step, scans };
+    waiting_s = 0;
+    scans = 0;
+    return read;
+  });
 }
 
 /**

@@ -3,7 +3,6 @@ import { type StoreModel, type StoreState, startStore } from '../track/storeTrac
 import type { TubeModel, TubeScratch } from '../track/tube.js';
 import { followOrigin } from '../track/unseenFlow.js';
 import { resetWall, stepWall } from '../track/wallZone.js';
-import type { UnitModel } from '../unitModel.js';
 import type { Course, CourseStep, TubeMean } from './course.js';
 import { type Spread, spreadOf } from './spread.js';
 import { type StoreVariant, storeSigmas, tallyVariant, variantOf } from './storeVariant.js';
@@ -71,6 +70,9 @@ export interface WorthOptions {
   readonly out_of_use: ReadonlySet<string>;
 }
 
+/** Without readings sigmas are formed this often [s]. */
+const LONGEST_UNWEIGHED_S = 900;
+
 /**
  * What each thermocouple of a store is worth: the covariance recursion of its tubes along a course,
  * with all thermocouples until the loss, from then on once for each thing lost or added, all side by
@@ -80,18 +82,17 @@ export interface WorthOptions {
  * A generator, so that whoever drains it can show progress and stop: yields the share done, returns
  * the answer.
  *
- * @param s index of the store in its unit
+ * @param s index of the store in the course
  * @throws RangeError for a course that weighs nothing, or has no store `s`
  */
 export function* weighSensors(
-  model: UnitModel,
+  store: StoreModel,
   s: number,
   course: Course,
   options: WorthOptions,
 ): Generator<number, StoreWorth> {
-  const store = model.stores[s];
   const start = course.start[s];
-  if (store === undefined || start === undefined) throw new RangeError(`store ${s}: not there`);
+  if (start === undefined) throw new RangeError(`store ${s}: not there`);
   const { steps, loss_at, weigh_from } = course;
   if (!(loss_at <= weigh_from && weigh_from < steps.length)) {
     throw new RangeError(`weigh_from = ${weigh_from}: expected ${loss_at} to ${steps.length - 1}`);
@@ -111,6 +112,7 @@ export function* weighSensors(
   let variants: Variants | null = null;
   const total = workOf(store, course, options);
   let done = 0;
+  let since_s = 0;
   for (let n = 0; n < steps.length; n++) {
     if (n === loss_at) variants = makeVariants(store, base, options);
     const step = steps[n] as CourseStep;
@@ -126,9 +128,14 @@ export function* weighSensors(
     followOrigin(store, state, false);
     done += base.length + (variants?.tubes.length ?? 0);
     if (n >= weigh_from && variants !== null) {
-      const compared = storeSigmas(store, state, new Map()).soc;
-      const weight = { dt_s: drive.dt_s, mode: step.mode, compared };
-      for (const variant of variants.all) tallyVariant(variant, store, state, weight);
+      since_s += drive.dt_s;
+      // Between readings sigma hardly grows, and it costs as much to form as the step itself.
+      if (step.scans > 0 || since_s >= LONGEST_UNWEIGHED_S || n + 1 === steps.length) {
+        const compared = storeSigmas(store, state, new Map()).soc;
+        const weight = { dt_s: since_s, mode: step.mode, compared };
+        for (const variant of variants.all) tallyVariant(variant, store, state, weight);
+        since_s = 0;
+      }
     }
     yield done / total;
   }
