@@ -4,6 +4,8 @@ import type { Scenario } from './scenario.js';
 import { SET_WORDS, unitWith } from './sensorSets.js';
 import type { Block } from './table.js';
 import type { RowResult } from './tally.js';
+import { unsoundFigures } from './unsound.js';
+import { type HealthyRun, healthyDays, wrongNames } from './wrongNames.js';
 
 const ERROR_WORDS = { independent: 'independent offsets', class: 'errors of the class' };
 
@@ -14,18 +16,14 @@ export function blocksOf(
   fresh: readonly number[],
 ): Block[] {
   const blocks: Block[] = [];
-  let broken = 0;
-  let named = 0;
-  let days = 0;
+  const everything: RowResult[] = [];
+  const healthy: HealthyRun[] = [];
   for (const scenario of scenarios) {
     for (const row of scenario.rows) {
       const results = resultsOf(scenario, row.id);
       if (results.length === 0) continue;
-      broken += results.reduce((sum, r) => sum + r.not_finite, 0);
-      if (scenario.healthy) {
-        named += results.reduce((sum, r) => sum + r.rejections.length, 0);
-        days += results.reduce((sum, r) => sum + r.scored_h, 0) / 24;
-      }
+      everything.push(...results);
+      if (scenario.healthy) healthy.push(...results.map((result) => ({ scenario, row, result })));
       const words = row.words === undefined ? scenario.words : `${scenario.words}: ${row.words}`;
       const rated_h = unitWith(row.set, row.errors).rated_hours;
       blocks.push({
@@ -41,10 +39,20 @@ export function blocksOf(
     }
   }
   if (blocks.length === 0) return [];
-  const all = [figure('estimates that are not finite', broken, '', { most: 0, each: true })];
-  if (days > 0) {
+  const broken = everything.reduce((sum, r) => sum + r.not_finite, 0);
+  const all = [
+    figure('estimates that are not finite', broken, '', { most: 0, each: true }),
+    ...unsoundFigures(everything),
+  ];
+  if (healthy.length > 0) {
+    const { days, read } = healthyDays(healthy);
+    const named = healthy.reduce((sum, run) => sum + run.result.rejections.length, 0);
     const note = `in ${days.toFixed(0)} unit-days with sound thermocouples; 300 are asked for`;
-    all.push(figure('sensors wrongly named', named, '', { most: 0 }, note));
+    all.push(
+      figure('sensors wrongly named', named, '', { most: 0 }, note),
+      figure('  unit-days as read by all sensor sets', read, 'd'),
+      ...wrongNames(healthy),
+    );
   }
   blocks.push({ scenario: 'all', row: 'all', title: 'all runs together', seeds: 0, figures: all });
   return blocks;

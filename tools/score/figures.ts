@@ -2,6 +2,7 @@ import { type Figure, figure, type Goal, rms } from './figure.js';
 import type { RowPlan, Scenario } from './scenario.js';
 import { bestShiftedPinball, binomialInterval, pinball } from './statistics.js';
 import { type HoursSample, mergeSum, type RowResult, rmsOf, type Sum, sumOf } from './tally.js';
+import { unsoundFigures } from './unsound.js';
 
 /** Truth over sigma as rms. */
 const RATIO: Goal = { least: 0.8, most: 1.25 };
@@ -50,6 +51,10 @@ export function commonFigures(
   for (const [name, words, goal] of ratios) {
     const sum = sums[`${name}/sigma`];
     out.push(figure(`truth over sigma, ${words}, rms`, rmsOf(sum), '', goal, sum?.at));
+    for (const store of STORES) {
+      const own = sums[`${name}/sigma ${store}`];
+      out.push(figure(`  ${store} alone`, rmsOf(own), '', null, own?.at));
+    }
   }
   if (scenario.hours) out.push(...hoursFigures(scenario, row, results, sums, about.rated_h));
   if (scenario.healthy) {
@@ -59,10 +64,13 @@ export function commonFigures(
   }
   const broken = results.reduce((sum, r) => sum + r.not_finite, 0);
   if (broken > 0) out.push(figure('estimates that are not finite', broken, '', ZERO));
+  // Those that are zero stand with all runs together.
+  out.push(...unsoundFigures(results).filter((f) => f.value !== 0));
   return out;
 }
 
 const ZERO: Goal = { most: 0, each: true };
+const STORES = ['hot', 'cold'] as const;
 
 function chargeFigures(
   scenario: Scenario,
@@ -82,7 +90,7 @@ function chargeFigures(
   };
   const apart = row.errors === 'class' && scenario.goals === 'sensors';
   const own = apart
-    ? (['hot', 'cold'] as const).map((store) =>
+    ? STORES.map((store) =>
         figure(
           `state of charge, ${store}, rms`,
           rmsOf(sums[`soc ${store}`]),
@@ -109,6 +117,8 @@ function chargeFigures(
     ),
     figure('  straight lines, rms', rmsOf(sums['line soc']), '%'),
     worstOf('line soc', '  straight lines, worst', null),
+    // What the estimate is wrong by, apart from what its strings do not see.
+    figure('  estimate against the rock at the strings, rms', rmsOf(sums['soc/seen']), '%'),
     figure('  rock at the strings against the store, rms', rmsOf(sums['seen soc']), '%'),
   ];
 }
@@ -132,7 +142,8 @@ const GOALS = {
 } as const;
 
 function goalsOf(scenario: Scenario, row: RowPlan) {
-  return scenario.goals !== 'sensors' || row.set === 'three' ? null : GOALS[row.set];
+  if (scenario.goals !== 'sensors' || row.plain || row.set === 'three') return null;
+  return GOALS[row.set];
 }
 
 function share(groups: readonly { hits: number; cases: number }[]): number | null {

@@ -10,6 +10,10 @@ export interface Unsound {
   indefinite: number;
   /** NaN or infinity among temperatures, factors or covariance. */
   not_finite: number;
+  /** Scans in which eigenvalues were looked at. */
+  factorised: number;
+  /** Least eigenvalue found, of a correlation matrix; 0 where none is negative beyond rounding. */
+  least: number;
 }
 
 export const sound = (): Unsound => ({
@@ -17,7 +21,11 @@ export const sound = (): Unsound => ({
   negative: 0,
   indefinite: 0,
   not_finite: 0,
+  factorised: 0,
+  least: 0,
 });
+
+const COUNTED = ['not_symmetric', 'negative', 'indefinite', 'not_finite', 'factorised'] as const;
 
 /** Factorising costs a tenth of a scan, so it is done this often [scans]. */
 const FACTORISE_EVERY = 30;
@@ -44,7 +52,11 @@ export function lookAt(state: UnitState, n: number, counts: Unsound): void {
       for (let i = 0; i < size; i++) {
         if (!(covariance[i * size + i]! >= 0)) now.negative = 1;
       }
-      if (n % FACTORISE_EVERY === 0 && !nonNegative(covariance, size, ROUNDING)) now.indefinite = 1;
+      if (n % FACTORISE_EVERY !== 0) continue;
+      now.factorised = 1;
+      if (nonNegative(covariance, size, ROUNDING)) continue;
+      now.indefinite = 1;
+      now.least = Math.min(now.least, leastEigenvalue(covariance, size));
     }
     if (
       store.wall &&
@@ -52,9 +64,8 @@ export function lookAt(state: UnitState, n: number, counts: Unsound): void {
     )
       now.not_finite = 1;
   }
-  for (const key of ['not_symmetric', 'negative', 'indefinite', 'not_finite'] as const) {
-    counts[key] += now[key];
-  }
+  for (const key of COUNTED) counts[key] += now[key];
+  counts.least = Math.min(counts.least, now.least);
 }
 
 function symmetric(matrix: Float64Array, size: number): boolean {
@@ -92,4 +103,11 @@ export function nonNegative(matrix: Float64Array, size: number, tolerance: numbe
     }
   }
   return true;
+}
+
+/** The least eigenvalue of the correlation matrix where it is negative, within a factor of two. */
+function leastEigenvalue(matrix: Float64Array, size: number): number {
+  let shift = ROUNDING;
+  while (shift < size && !nonNegative(matrix, size, shift)) shift *= 2;
+  return -shift;
 }

@@ -21,6 +21,10 @@ interface Arrival {
   /** What reaches the estimator of the true readings; by exception, at random, or all. */
   readonly through?: (unit: UnitDefinition, random: RandomStream) => Reporter;
   readonly prepare?: (unit: UnitDefinition) => UnitDefinition;
+  /** Readings are withheld. */
+  readonly missing?: true;
+  /** Figures without goals. */
+  readonly plain?: true;
 }
 
 type Reporter = (reading: Reading, elapsed_s: number, time_ms: number) => Reading;
@@ -117,6 +121,8 @@ const ARRIVALS: readonly Arrival[] = [
     words: 'every 30 to 300 s, scan period 60 s',
     period_s: SCAN_S,
     spacing_s: stepsBetween(30, 300),
+    // Whoever configures so loses most of the flow.
+    plain: true,
   },
   {
     id: 'exception',
@@ -132,6 +138,8 @@ const ARRIVALS: readonly Arrival[] = [
     period_s: SCAN_S,
     spacing_s: even,
     through: sparse,
+    missing: true,
+    plain: true,
   },
   {
     id: 'silent',
@@ -139,6 +147,8 @@ const ARRIVALS: readonly Arrival[] = [
     period_s: SCAN_S,
     spacing_s: even,
     through: silentStore,
+    missing: true,
+    plain: true,
   },
 ];
 
@@ -148,6 +158,7 @@ const rowsOf = (set: SensorSet, ids: readonly string[]): RowPlan[] =>
     set,
     errors: 'independent',
     words: a.words,
+    ...(a.plain ? { plain: true } : {}),
   }));
 
 /** One definition per row, so that what the core keeps per definition is made once. */
@@ -181,7 +192,11 @@ export const runScans: Runner = (recording, seed, rows) =>
           return report ? report(reading, elapsed_s, recording.time_ms(n)) : reading;
         },
       });
-      return [plan.id, tally(series, seed)];
+      // A reading that is withheld is open circuit for whoever reads it, and rightly so.
+      const rejections = arrival.missing
+        ? series.rejections.filter((r) => r.verdict !== 'open')
+        : series.rejections;
+      return [plan.id, tally({ ...series, rejections }, seed)];
     }),
   );
 
