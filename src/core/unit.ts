@@ -36,7 +36,7 @@ export interface UnitSnapshot {
   readonly state: UnitState;
 }
 
-const SNAPSHOT_VERSION = 2;
+const SNAPSHOT_VERSION = 3;
 const NOTHING: UnitAsk = { hours_at_W: [], profile: false };
 /** Longest run of empty scans that a gap is filled with; a longer gap takes coarser ones. */
 const TICKS_MOST = 720;
@@ -132,7 +132,12 @@ export function restoreUnit(unit: UnitDefinition, snapshot: UnitSnapshot): UnitS
     const { tubes, sensors, wall } = stores[s] as StoreState;
     const name = `store ${store.store.id}`;
     requireShape(name, 'strings', tubes.length, store.tubes.length);
-    requireShape(name, 'zones at the wall', wall ? 1 : 0, store.wall === null ? 0 : 1);
+    requireShape(
+      name,
+      'layers at the wall',
+      wall?.enthalpy?.length ?? 0,
+      store.wall?.layers.length ?? 0,
+    );
     store.tubes.forEach(({ string, layout }, k) => {
       const tube = tubes[k] as TubeState;
       const own = `string ${string.id}`;

@@ -15,7 +15,7 @@ const RINGS_AT_LEAST = 6;
  * 0.3 m from a wall within half a cycle, and the steel's heat comes from there. With rings of equal
  * area alone the lag of the front at the wall came out at half of what 25 rings give.
  */
-const WALL_LAYERS = [0.02, 0.04, 0.08] as const;
+const WALL_LAYERS = [0.02, 0.04, 0.06, 0.08] as const;
 
 /**
  * Tubes are laid out from the axis outwards in the order of the strings' radii, each with its share

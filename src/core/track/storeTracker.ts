@@ -38,7 +38,7 @@ export interface StoreModel {
 export interface StoreState {
   readonly tubes: TubeState[];
   readonly sensors: SensorMemory[][];
-  /** The zone at the wall, null where the definition has no wall steel. */
+  /** The layers at the wall, null where the definition has no wall steel. */
   readonly wall: WallState | null;
   started: boolean;
   /** Energy-equivalent position where the fronts were last known to be even across the bed [m]. */
@@ -72,7 +72,8 @@ export function storeModel(
 
 export function startStore(model: StoreModel): StoreState {
   const tubes = model.tubes.map(blankTube);
-  const wall = model.wall === null ? null : startWall(model.tubes[0]?.layout.cells ?? 0);
+  const wall =
+    model.wall === null ? null : startWall(model.wall, model.tubes[0]?.layout.cells ?? 0);
   if (model.wall !== null && wall !== null) {
     resetWall(model.tables, wall, tubes[model.wall.tube] as TubeState);
   }

@@ -2,7 +2,7 @@ import type { StoreModel, StoreState } from './storeTracker.js';
 import type { TubeState } from './tube.js';
 import type { WallModel } from './wallZone.js';
 
-/** A part of the bed with a profile of its own: a string's tube, or the zone at the wall. */
+/** A part of the bed with a profile of its own: a string's tube, or a layer at the wall. */
 export interface Stream {
   /** Share of the bed's cross-section; those of a store add up to 1. */
   readonly share: number;
@@ -12,7 +12,10 @@ export interface Stream {
   /** On top of the configured heat-transfer factor. */
   readonly heatTransferFactor: number;
   readonly wallLoss_W_m3K: number;
-  /** Of the zone at the wall: its steel, and the stream beside it by index. */
+  /**
+   * Of the last stream where the bed has layers at the wall: their model and the steel. The layers
+   * are the last streams, from the tube outwards; `model.tube` is the index of the tube beside them.
+   */
   readonly wall?: { readonly model: WallModel; readonly steel_K: Float64Array };
 }
 
@@ -33,14 +36,19 @@ export function streamsOf(model: StoreModel, state: StoreState): Stream[] {
   });
   if (wall === null || state.wall === null) return streams;
   const beside = streams[wall.tube] as Stream;
-  streams.push({
-    ...beside,
-    share: wall.share,
-    enthalpy: state.wall.enthalpy,
-    outlet_K: state.wall.outlet_K,
-    // Lost through the steel: see exchangeAtWall.
-    wallLoss_W_m3K: 0,
-    wall: { model: wall, steel_K: state.wall.steel_K },
+  const { enthalpy, outlet_K, steel_K } = state.wall;
+  const last = wall.layers.length - 1;
+  wall.layers.forEach((layer, i) => {
+    streams.push({
+      ...beside,
+      share: layer.share,
+      enthalpy: enthalpy[i] as Float64Array,
+      outlet_K: outlet_K[i] as number,
+      flowFactor: beside.flowFactor * layer.flowFactor,
+      // Lost through the steel: see exchangeAtWall.
+      wallLoss_W_m3K: 0,
+      ...(i === last ? { wall: { model: wall, steel_K } } : {}),
+    });
   });
   return streams;
 }

@@ -4,44 +4,69 @@ import type { BedDefinition } from '../definitions.js';
 import type { TubeDrive, TubeModel, TubeScratch, TubeState } from './tube.js';
 
 /**
- * The zone at the wall that no thermocouple sees: it gives heat to the vessel's steel and through it
- * to ambient, so its front lags behind that of the outermost string while the fronts advance. Its
- * thickness is the depth that heat penetrates within half a cycle, 2 sqrt(alpha t).
+ * The rock at the wall that no thermocouple sees: it gives heat to the vessel's steel and through it
+ * to ambient, so its front lags behind that of the outermost string, while the looser packing there
+ * lets it run ahead. Its thickness is the depth that heat penetrates within half a cycle,
+ * 2 sqrt(alpha t), in layers that grow inwards from the wall.
  *
- *   steel:  C_w dTw/dt = h_w (T - Tw) - U (Tw - Tamb)          per mantle area
- *   zone:   the bed's step, - h_w (T - Tw) - h_r (T - T_tube)  per mantle area
+ *   steel:  C_w dTw/dt = h_w (T_1 - Tw) - U (Tw - Tamb)                       per mantle area
+ *   layer:  the bed's step, and heat to the next layer, the tube or the steel
  *
  * It has no filter of its own: factors are those of the outermost tube, and each correction of that
- * tube's temperatures moves the zone's alike.
+ * tube's temperatures moves the layers alike.
  */
 export interface WallModel {
   /** Index of the outermost tube. */
   readonly tube: number;
-  /** Share of the bed's cross-section. */
+  /** Share of the bed's cross-section, all layers together. */
   readonly share: number;
-  /** Per volume of the zone: steel's heat capacity [J/m3K], exchange with steel and tube, loss [W/m3K]. */
+  /** From the tube outwards; the last touches the wall. */
+  readonly layers: readonly WallLayer[];
+  /** Per volume of the last layer: steel's heat capacity [J/m3K], exchange with steel, loss [W/m3K]. */
   readonly steel_J_m3K: number;
   readonly exchange_W_m3K: number;
-  /** Radial exchange with the tube per conductivity [1/m2]. */
-  readonly radial_1_m2: number;
   readonly loss_W_m3K: number;
-  /** Volume of the zone over that of the rest of the outermost tube. */
+  /** One sigma of the last layer's flow factor. */
+  readonly flowSigma: number;
+}
+
+export interface WallLayer {
+  /** Share of the bed's cross-section. */
+  readonly share: number;
+  /** Flow per area over that of the tube. */
+  readonly flowFactor: number;
+  /** Radial exchange with what lies inwards (tube or layer) per conductivity and volume [1/m2]. */
+  readonly radial_1_m2: number;
+  /** Volume over that of what lies inwards. */
   readonly volumeRatio: number;
 }
 
 export interface WallState {
-  readonly enthalpy: Float64Array;
+  /** Enthalpy of each layer's cells [J/m3 of bed]. */
+  readonly enthalpy: Float64Array[];
   readonly steel_K: Float64Array;
-  outlet_K: number;
+  /** Gas that left each layer in the last step [K]. */
+  readonly outlet_K: Float64Array;
 }
 
 /** Half a cycle, for the depth that heat penetrates [s]. */
 const HALF_CYCLE_S = 6 * 3600;
+/** Layers as shares of that depth, from the tube outwards: three resolve it within some per cent. */
+const LAYERS = [1, 0.5, 0.25] as const;
 /** Contact and radiation between rock and wall [W/m2K]: common practice for a packed wall, no source. */
 const CONTACT_W_M2K = 10;
 /** Radial mixing over G cf d (Wakao & Kaguei 1982, radial dispersion 0.1 Re Pr k_f). */
 const RADIAL_MIXING = 0.1;
-/** At most this share of the outermost tube is zone. */
+/**
+ * Flow that the looser packing lets through at the wall over that of the bed far from it, as the
+ * thickness of bed [particle diameters] that would pass it. The equations of Ergun and Brinkman for
+ * a plane wall with eps = eps_0 (1 + 1.36 exp(-5 y/d)) and mu_eff = 2 mu exp(0.0035 Re), Giese,
+ * Rottschaefer & Vortmeyer 1998 (constants from memory), give 0.5 to 0.65 for spheres at Re of 50 to
+ * 500; with less than half their rise in void fraction, as crushed rock fills the wall better, 0.2.
+ */
+const WALL_FLOW_DIAMETERS = 0.35;
+const WALL_FLOW_SIGMA_DIAMETERS = 0.15;
+/** At most this share of the outermost tube is layers. */
 const MOST_OF_TUBE = 0.7;
 
 /** null for a bed without wall steel in its definition. */
@@ -57,40 +82,60 @@ export function wallModel(tables: BedTables, tubes: readonly TubeModel[]): WallM
   const k = tables.stagnant[middle] as number;
   const alpha = k / (tables.heatCapacity[middle] as number);
   const radius = bed.diameter_m / 2;
-  const depth = Math.min(radius / 2, 2 * Math.sqrt(alpha * HALF_CYCLE_S));
   const outer = (tubes[tube] as TubeModel).string.area_share;
-  const ring = 1 - ((radius - depth) / radius) ** 2;
-  const share = Math.min(ring, MOST_OF_TUBE * outer);
-  // Mantle area per volume of the zone.
-  const perVolume = (Math.PI * bed.diameter_m) / (share * bed.area_m2);
+  const total = LAYERS.reduce((sum, layer) => sum + layer, 0);
+  const most = radius * (1 - Math.sqrt(1 - MOST_OF_TUBE * outer));
+  const depth = Math.min(most / total, 2 * Math.sqrt(alpha * HALF_CYCLE_S));
+  const inside = radius * Math.sqrt(1 - outer);
+  const edges = [radius - total * depth];
+  for (const layer of LAYERS) edges.push((edges[edges.length - 1] as number) + layer * depth);
+  const shareOf = (from: number, to: number): number => (to * to - from * from) / (radius * radius);
+  const last = LAYERS.length - 1;
+  const thickness = (LAYERS[last] as number) * depth;
+  const diameters = bed.particle_diameter_m / thickness;
+  const layers = LAYERS.map((_, i): WallLayer => {
+    const from = edges[i] as number;
+    const to = edges[i + 1] as number;
+    const inner = i === 0 ? inside : (edges[i - 1] as number);
+    const share = shareOf(from, to);
+    return {
+      share,
+      flowFactor: i === last ? 1 + WALL_FLOW_DIAMETERS * diameters : 1,
+      // Area of the cylinder between per volume, over the distance of the middles.
+      radial_1_m2: (2 * Math.PI * from) / (share * bed.area_m2) / ((to - inner) / 2),
+      volumeRatio: share / shareOf(inner, from),
+    };
+  });
+  // Mantle area per volume of the last layer.
+  const perVolume = (Math.PI * bed.diameter_m) / ((layers[last] as WallLayer).share * bed.area_m2);
   return {
     tube,
-    share,
+    share: layers.reduce((sum, layer) => sum + layer.share, 0),
+    layers,
     steel_J_m3K: steel * perVolume,
-    exchange_W_m3K: perVolume / (1 / CONTACT_W_M2K + depth / 2 / k),
-    radial_1_m2: perVolume / (1.5 * depth),
+    exchange_W_m3K: perVolume / (1 / CONTACT_W_M2K + thickness / 2 / k),
     loss_W_m3K: bed.wall_loss_W_m2K * bed.loss_factor * perVolume,
-    volumeRatio: share / (outer - share),
+    flowSigma: WALL_FLOW_SIGMA_DIAMETERS * diameters,
   };
 }
 
-export function startWall(cells: number): WallState {
+export function startWall(model: WallModel, cells: number): WallState {
   return {
-    enthalpy: new Float64Array(cells),
+    enthalpy: model.layers.map(() => new Float64Array(cells)),
     steel_K: new Float64Array(cells),
-    outlet_K: Number.NaN,
+    outlet_K: new Float64Array(model.layers.length).fill(Number.NaN),
   };
 }
 
-/** Sets zone and steel to the outermost tube's temperatures: what is known at a start. */
+/** Sets layers and steel to the outermost tube's temperatures: what is known at a start. */
 export function resetWall(tables: BedTables, wall: WallState, tube: TubeState): void {
-  wall.enthalpy.set(tube.enthalpy);
-  for (let i = 0; i < wall.enthalpy.length; i++) {
-    wall.steel_K[i] = temperatureAt(tables, wall.enthalpy[i] as number);
+  for (const layer of wall.enthalpy) layer.set(tube.enthalpy);
+  for (let i = 0; i < wall.steel_K.length; i++) {
+    wall.steel_K[i] = temperatureAt(tables, tube.enthalpy[i] as number);
   }
 }
 
-/** One scan of zone and steel; the heat passed to the outermost tube is taken from it. */
+/** One scan of layers and steel; the heat passed to the outermost tube is taken from it. */
 export function stepWall(
   model: WallModel,
   tubeModel: TubeModel,
@@ -110,62 +155,85 @@ export function stepWall(
     heatTransferFactor: Math.exp(further(layout.transfer)),
     wallLoss_W_m3K: 0,
   };
-  const substeps = planSubsteps(tables, layout.cells, whole);
-  const dt = drive.dt_s / substeps;
-  let out = 0;
-  for (let n = 0; n < substeps; n++) {
-    bedSubstep(tables, wall.enthalpy, { ...whole, dt_s: dt }, scratch.probe);
-    out += scratch.probe.outlet_K;
-    exchangeAtWall(model, tables, wall.enthalpy, wall.steel_K, tube.enthalpy, {
-      massFlux_kg_m2s: whole.massFlux_kg_m2s,
-      ambient_K: drive.ambient_K,
-      dt_s: dt,
-    });
-  }
-  wall.outlet_K = out / substeps;
+  model.layers.forEach(({ flowFactor }, i) => {
+    const layer = wall.enthalpy[i] as Float64Array;
+    const own = { ...whole, massFlux_kg_m2s: whole.massFlux_kg_m2s * flowFactor };
+    const substeps = planSubsteps(tables, layout.cells, own);
+    const part = { ...own, dt_s: own.dt_s / substeps };
+    let out = 0;
+    for (let n = 0; n < substeps; n++) {
+      bedSubstep(tables, layer, part, scratch.probe);
+      out += scratch.probe.outlet_K;
+    }
+    wall.outlet_K[i] = out / substeps;
+  });
+  exchangeAtWall(model, tables, wall.enthalpy, wall.steel_K, tube.enthalpy, whole);
 }
 
+/** Share of a layer's heat that one explicit step may move. */
+const MOST_MOVED = 0.25;
+
 /**
- * Heat between zone, steel and the outermost tube over a step, all three changed in place. Steel
- * relaxes exactly towards zone and ambient; the rest is explicit (hours against the step).
+ * Heat between layers, steel and the outermost tube over a step, all changed in place. Steel relaxes
+ * exactly towards its layer and ambient; the rest is explicit, in parts short enough for that.
  *
- * @param zone enthalpy of the zone's cells [J/m3]
+ * @param layers enthalpy of each layer's cells, from the tube outwards [J/m3]
  * @param steel_K temperature of the steel beside each cell [K]
  * @param tube enthalpy of the outermost tube's cells [J/m3]
  */
 export function exchangeAtWall(
   model: WallModel,
   tables: BedTables,
-  zone: Float64Array,
+  layers: readonly Float64Array[],
   steel_K: Float64Array,
   tube: Float64Array,
   step: Pick<BedStep, 'massFlux_kg_m2s' | 'ambient_K' | 'dt_s'>,
 ): void {
   const { exchange_W_m3K: x, loss_W_m3K: u, steel_J_m3K: c } = model;
-  const dt = step.dt_s;
-  const fade = Math.exp((-(x + u) * dt) / c);
   const middle = tables.segments >> 1;
   const mixing =
     RADIAL_MIXING *
     Math.abs(step.massFlux_kg_m2s) *
     tables.bed.particle_diameter_m *
     (tables.fluidHeatCapacity[middle] as number);
-  const radial = model.radial_1_m2 * ((tables.stagnant[middle] as number) + mixing) * dt;
-  for (let i = 0; i < zone.length; i++) {
-    const t = temperatureAt(tables, zone[i] as number);
-    const steel = steel_K[i] as number;
-    const settled = (x * t + u * step.ambient_K) / (x + u);
-    const next = settled + (steel - settled) * fade;
-    // What the steel took, and what it lost meanwhile at its mean temperature.
-    const lost = u * dt * (0.5 * (steel + next) - step.ambient_K);
-    const across = radial * (t - temperatureAt(tables, tube[i] as number));
-    steel_K[i] = next;
-    zone[i] = (zone[i] as number) - c * (next - steel) - lost - across;
-    tube[i] = (tube[i] as number) + across * model.volumeRatio;
+  const { stagnant, segments, inverse_dH } = tables;
+  const last = layers.length - 1;
+  const outermost = layers[last] as Float64Array;
+  // Radiation between the pieces makes the hottest rock conduct best.
+  const most = Math.max(stagnant[0] as number, stagnant[segments - 1] as number) + mixing;
+  const fastest = Math.max(x, 2 * most * (model.layers[last]?.radial_1_m2 ?? 0));
+  const least = tables.heatCapacity[0] as number;
+  const parts = Math.max(1, Math.ceil((step.dt_s * fastest) / least / MOST_MOVED));
+  const dt = step.dt_s / parts;
+  const fade = Math.exp((-(x + u) * dt) / c);
+  for (let n = 0; n < parts; n++) {
+    for (let i = 0; i < tube.length; i++) {
+      const t = temperatureAt(tables, outermost[i] as number);
+      const steel = steel_K[i] as number;
+      const settled = (x * t + u * step.ambient_K) / (x + u);
+      const next = settled + (steel - settled) * fade;
+      // What the steel took, and what it lost meanwhile at its mean temperature.
+      const lost = u * dt * (0.5 * (steel + next) - step.ambient_K);
+      let outer = t;
+      for (let l = last; l >= 0; l--) {
+        const { radial_1_m2, volumeRatio } = model.layers[l] as WallLayer;
+        const inwards = l > 0 ? (layers[l - 1] as Float64Array) : tube;
+        const own = layers[l] as Float64Array;
+        const inner = temperatureAt(tables, inwards[i] as number);
+        const s = Math.floor((own[i] as number) * inverse_dH);
+        const k = (stagnant[s < 0 ? 0 : s < segments ? s : segments - 1] as number) + mixing;
+        const across = radial_1_m2 * k * dt * (outer - inner);
+        own[i] = (own[i] as number) - across;
+        inwards[i] = (inwards[i] as number) + across * volumeRatio;
+        outer = inner;
+      }
+      steel_K[i] = next;
+      outermost[i] = (outermost[i] as number) - c * (next - steel) - lost;
+    }
   }
 }
 
-/** Moves the zone by the correction that its tube has just had. */
+/** Moves the layers by the correction that their tube has just had. */
 export function followCorrection(
   tables: BedTables,
   wall: WallState,
@@ -174,7 +242,8 @@ export function followCorrection(
 ): void {
   for (let i = 0; i < before_K.length; i++) {
     const shift = (after_K[i] as number) - (before_K[i] as number);
-    const t = temperatureAt(tables, wall.enthalpy[i] as number) + shift;
-    wall.enthalpy[i] = enthalpyAt(tables, t);
+    for (const layer of wall.enthalpy) {
+      layer[i] = enthalpyAt(tables, temperatureAt(tables, layer[i] as number) + shift);
+    }
   }
 }

@@ -140,7 +140,10 @@ export function faultOf(model: StoreModel, state: StoreState): string | null {
       }
     }
   }
-  const wall = state.wall === null ? [] : [...state.wall.enthalpy, ...state.wall.steel_K];
+  const wall =
+    state.wall === null
+      ? []
+      : [...state.wall.enthalpy.flatMap((l) => [...l]), ...state.wall.steel_K];
   if (wall.some((v) => !Number.isFinite(v))) return 'wall: not finite';
   return null;
 }
