@@ -1,5 +1,6 @@
 import { spawnSync } from 'node:child_process';
 import { describe, expect, it } from 'vitest';
+import type { Scenario } from '../../tools/score/scenario.js';
 import { ALL_SCENARIOS, QUICK, SCENARIOS } from '../../tools/score/scenarios.js';
 import { root } from '../house/imports.js';
 
@@ -37,12 +38,26 @@ describe('the scenarios', () => {
     }
   });
 
+  it('stand in the module of own/ by whose code their results are kept', async () => {
+    for (const scenario of ALL_SCENARIOS) {
+      const module = await import(`../../tools/score/own/${scenario.code}.ts`);
+      const there = Object.values(module).flat() as Scenario[];
+      // Short ones may be a long one with fewer rows.
+      expect(
+        there.map((s) => s.run),
+        scenario.id,
+      ).toContain(scenario.run);
+      expect(there.map((s) => s.truth)).toContain(scenario.truth);
+    }
+  });
+
   it('cover what is asked for', () => {
     const asked = ['nominal', 'week', 'standing', 'faults', 'meter-step', 'gap'];
+    const more = ['scans', 'restart', 'leak', 'settled'];
     const levels = ['channel-5', 'channel-10', 'channel-22'];
     const transfers = ['transfer-70', 'transfer-50', 'transfer-16'];
     const ids = SCENARIOS.map((s) => s.id);
-    expect(ids).toEqual(expect.arrayContaining([...asked, ...levels, ...transfers]));
+    expect(ids).toEqual(expect.arrayContaining([...asked, ...more, ...levels, ...transfers]));
     expect(QUICK.length).toBeGreaterThan(3);
   });
 });

@@ -1,5 +1,10 @@
 import { describe, expect, it } from 'vitest';
-import { bestShiftedPinball, binomialInterval, pinball } from '../../tools/score/statistics.js';
+import {
+  bestShiftedPinball,
+  binomialInterval,
+  pinball,
+  student95,
+} from '../../tools/score/statistics.js';
 import { mulberry } from '../support/random.js';
 
 const groups = (count: number, cases: number, hits: (g: number) => number) =>
@@ -14,7 +19,7 @@ describe('the binomial interval', () => {
     );
     expect(b.share).toBeCloseTo(0.1, 12);
     expect(b.effective).toBe(1000);
-    expect(b.high - 0.1).toBeCloseTo(1.96 * Math.sqrt(0.09 / 1000), 4);
+    expect(b.high - 0.1).toBeCloseTo(2.262 * Math.sqrt(0.09 / 1000), 4);
     expect(0.1 - b.low).toBeCloseTo(b.high - 0.1, 12);
   });
 
@@ -30,6 +35,24 @@ describe('the binomial interval', () => {
   it('counts each seed as one where nothing tells how alike its cases are', () => {
     const none = groups(35, 20, () => 0);
     expect(binomialInterval(0.1, none).effective).toBeCloseTo(35, 9);
+  });
+
+  it('takes one seed alone as one case', () => {
+    const b = binomialInterval(0.1, [{ hits: 3, cases: 20 }]);
+    expect(b.effective).toBe(1);
+    expect([b.low, b.high]).toEqual([0, expect.closeTo(0.1 + 1.96 * 0.3, 3)]);
+  });
+
+  it('takes the spread from few seeds with their degrees of freedom', () => {
+    // Abramowitz & Stegun 1964, table 26.10, two-sided 5 %.
+    for (const [degrees, t] of [
+      [4, 2.776],
+      [15, 2.131],
+      [34, 2.032],
+      [120, 1.98],
+    ] as const) {
+      expect(student95(degrees)).toBeCloseTo(t, 3);
+    }
   });
 
   it('holds the true share in 95 of 100 repetitions, with cases that are alike within a seed', () => {

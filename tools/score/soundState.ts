@@ -58,11 +58,9 @@ export function lookAt(state: UnitState, n: number, counts: Unsound): void {
       now.indefinite = 1;
       now.least = Math.min(now.least, leastEigenvalue(covariance, size));
     }
-    if (
-      store.wall &&
-      ![store.wall.enthalpy, store.wall.steel_K].every((a) => a.every(Number.isFinite))
-    )
-      now.not_finite = 1;
+    if (store.wall === null) continue;
+    const wall = [...store.wall.enthalpy, store.wall.steel_K];
+    if (!wall.every((a) => a.every(Number.isFinite))) now.not_finite = 1;
   }
   for (const key of COUNTED) counts[key] += now[key];
   counts.least = Math.min(counts.least, now.least);

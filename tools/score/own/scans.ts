@@ -31,7 +31,7 @@ type Reporter = (reading: Reading, elapsed_s: number, time_ms: number) => Readin
 
 const SCAN_S = 60;
 const even = () => SCAN_S;
-const stepsBetween = (least_s: number, most_s: number) => (random: RandomStream) =>
+export const stepsBetween = (least_s: number, most_s: number) => (random: RandomStream) =>
   least_s + GRID_S * Math.floor(random.uniform(0, (most_s - least_s) / GRID_S + 1 - 1e-9));
 
 /** Deadbands of a plant that saves on its network: temperatures [K]; the others as shares of their range. */
@@ -39,7 +39,7 @@ const DEADBAND_K = 1;
 const DEADBAND_SHARE = 0.01;
 const LONGEST_SILENCE_S = 1800;
 
-function byException(unit: UnitDefinition): UnitDefinition {
+export function byException(unit: UnitDefinition): UnitDefinition {
   const { flow_max_kg_s, power_max_W } = unit.limits.discharge;
   return {
     ...unit,
@@ -60,7 +60,7 @@ function byException(unit: UnitDefinition): UnitDefinition {
 }
 
 /** Says a value where it left the deadband about the last one said, or after half the longest silence. */
-function exceptions(unit: UnitDefinition): Reporter {
+export function exceptions(unit: UnitDefinition): Reporter {
   const said = new Float64Array(unit.channels.length).fill(Number.NaN);
   const at_ms = new Float64Array(unit.channels.length).fill(Number.NEGATIVE_INFINITY);
   const state = startHold(unit);
@@ -83,7 +83,7 @@ function exceptions(unit: UnitDefinition): Reporter {
 const PRESENT = 0.2;
 
 /** Each reading is there with a chance of 20 %, whatever it is. */
-function sparse(_: UnitDefinition, random: RandomStream): Reporter {
+export function sparse(_: UnitDefinition, random: RandomStream): Reporter {
   return ({ values, held }) => ({
     values: values.map((v) => (random.uniform() < PRESENT ? v : Number.NaN)),
     held,
@@ -93,7 +93,7 @@ function sparse(_: UnitDefinition, random: RandomStream): Reporter {
 /** When one store's thermocouples are silent [h]: over the turn from charge to discharge. */
 const SILENT_H = [4.75, 5.75] as const;
 
-function silentStore(unit: UnitDefinition, random: RandomStream): Reporter {
+export function silentStore(unit: UnitDefinition, random: RandomStream): Reporter {
   const silent = unit.stores[random.uniform() < 0.5 ? 0 : 1]!.id;
   const own = unit.channels.map((c) => 'store' in c.role && c.role.store === silent);
   return (reading, elapsed_s) => {
@@ -173,7 +173,7 @@ function unitOf(plan: RowPlan, arrival: Arrival): UnitDefinition {
   return unit;
 }
 
-export const runScans: Runner = (recording, seed, rows) =>
+const runScans: Runner = (recording, seed, rows) =>
   Object.fromEntries(
     rows.map((plan) => {
       const arrival = ARRIVALS.find((a) => plan.id.endsWith(`-${a.id}`))!;
