@@ -38,6 +38,8 @@ export interface SensorWorth extends Changed {
 
 export interface GroupWorth extends Omit<Changed, 'string'> {
   readonly id: string;
+  /** Of the string that it takes thermocouples of; null where there are several. */
+  readonly string: Spread | null;
   readonly thermocouples: number;
   /** Strings of which it takes thermocouples. */
   readonly strings: readonly string[];
@@ -295,10 +297,12 @@ function answerOf(store: StoreModel, variants: Variants, options: WorthOptions):
     all,
     sensors: sensors.sort((a, b) => Math.abs(b.rise) - Math.abs(a.rise)),
     groups: [...variants.groups].map(([id, variant]): GroupWorth => {
-      const { string: _, ...rest } = changed(variant);
+      const { string, ...rest } = changed(variant);
       const of = store.store.strings.filter((t) => t.thermocouples.some((c) => c.group === id));
       const count = of.flatMap((t) => t.thermocouples).filter((c) => c.group === id).length;
-      return { id, thermocouples: count, strings: of.map((t) => t.id), ...rest };
+      const strings = of.map((t) => t.id);
+      const only = strings.length === 1 ? string : null;
+      return { id, thermocouples: count, strings, string: only, ...rest };
     }),
     strings: store.store.strings.map(
       (string, k): StringWorth => ({
