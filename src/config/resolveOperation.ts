@@ -28,6 +28,9 @@ export function resolveMachine(block: MachineBlock): MachineDefinition {
       compressor_polytropic_efficiency: block.compressor_polytropic_efficiency,
       expander_polytropic_efficiency: block.expander_polytropic_efficiency,
       loop_pressure_loss: block.loop_pressure_loss,
+      ...(block.loss_follows_flow === undefined
+        ? {}
+        : { loss_follows_flow: block.loss_follows_flow }),
       cooler_approach_K: block.cooler_approach_K,
       motor_efficiency: block.motor_efficiency,
       generator_efficiency: block.generator_efficiency,

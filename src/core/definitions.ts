@@ -145,6 +145,11 @@ export interface GasCycleDefinition {
   readonly expander_polytropic_efficiency: number;
   /** Total pressure loss of the loop as a share of each pressure level, split evenly over both. */
   readonly loop_pressure_loss: number;
+  /**
+   * Share of that loss that follows the square of the flow, the loss as given being that at rated
+   * flow; the rest is constant. Absent: not known.
+   */
+  readonly loss_follows_flow?: number;
   /** Difference between a cooler's outlet and ambient [K]. */
   readonly cooler_approach_K: number;
   readonly motor_efficiency: number;

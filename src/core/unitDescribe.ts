@@ -1,4 +1,4 @@
-import { hoursInput, hoursOf, stateOfCharge } from './dispatch/unitHours.js';
+import { hoursOf, stateOfCharge } from './dispatch/unitHours.js';
 import type { Estimate, ProfileView, Quality, StoreEstimate } from './estimate.js';
 import { estimateStore, profileOf } from './track/storeEstimate.js';
 import type { StoreState } from './track/storeTracker.js';
@@ -29,7 +29,6 @@ export function describe(model: UnitModel, state: UnitState, taken: Taken, ask: 
       energy,
     });
   });
-  const input = hoursInput(model, state);
   const time = new Date(scan.time_ms).toISOString();
   const estimate: Estimate = {
     time,
@@ -41,7 +40,6 @@ export function describe(model: UnitModel, state: UnitState, taken: Taken, ask: 
       model,
       state,
       scan,
-      input,
       Math.min(...taken.stores.map((store) => store.energy.soc)),
       taken.modeChanged,
     ),

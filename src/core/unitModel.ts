@@ -84,7 +84,7 @@ function hoursWhenFull(
     models,
     states,
     plenum_K: models.map(() => Number.NaN),
-    workFactor: { factor: 1, sigma: 0 },
+    calibration: null,
     ambient_K: unit.ambient_K,
   };
   return centralHours(input, unit.rated_power_W).hours;

@@ -36,6 +36,12 @@ const gasCycle = z.strictObject({
     'Pressure loss of the whole loop as a share of the pressure, half of it on each side.',
     0.03,
   ),
+  loss_follows_flow: key(
+    z.number().min(0).max(1),
+    '-',
+    'Share of that loss that follows the square of the flow, the loss being that at rated flow; left out where it is not known.',
+    0.6,
+  ).optional(),
   cooler_approach_K: key(z.number().min(0).max(100), 'K', 'Outlet of a cooler above ambient.', 15),
   motor_efficiency: key(efficiency(), '-', 'Shaft over electrical power while charging.', 0.96),
   generator_efficiency: key(

@@ -14,7 +14,7 @@ export interface RolloutTube {
   readonly flowFactor: number;
   readonly heatTransferFactor: number;
   readonly wallLoss_W_m3K: number;
-  /** Of the zone at the wall: its model and its steel [K]; `wall.model.tube` is the tube beside it. */
+  /** Of the last of the layers at the wall: their model and the steel [K]; see Stream. */
   readonly wall?: { readonly model: WallModel; readonly steel_K: Float64Array };
 }
 
@@ -32,8 +32,10 @@ export interface RolloutInput {
   readonly stores: readonly RolloutStore[];
   /** Net power delivered at the connection point [W]. */
   readonly power_W: number;
-  /** Learned factor on the machine's work per metered kilogram. */
+  /** Learned factor on the machine's work per metered kilogram, at rated flow. */
   readonly workFactor: number;
+  /** The same work at a flow [kg/s] over that at rated flow; absent = 1 at any. */
+  readonly partLoad?: (flow_kg_s: number) => number;
   readonly ambient_K: number;
   /** Step once the lids are swept [s]. */
   readonly step_s: number;
@@ -52,13 +54,18 @@ export const RULES: readonly EndCause[] = [
 export interface RolloutResult {
   /** When each rule is first broken [s], Infinity where it is not within the time rolled. */
   readonly times_s: Float64Array;
+  /**
+   * Where an outlet was beyond its limit as soon as its rule held: when that was [s], else 0. The
+   * plant would stop then, or not start at all.
+   */
+  readonly trips_s: number;
   /** Earliest of them, and which. Infinity with `empty` where none was broken. */
   readonly end_s: number;
   readonly ends_by: EndCause;
 }
 
 /** Gas that stood under a lid may take this long to be pushed out [s]. */
-const SWEEP_MOST_S = 600;
+export const SWEEP_MOST_S = 600;
 /** Meanwhile a step is taken in so many parts: a lid changes within minutes, and the flow with it. */
 const SWEEP_PARTS = 5;
 /** After the first rule is broken the others are followed for this share of the time longer. */
@@ -97,6 +104,7 @@ export function rollOut(
   const coldIndex = input.stores.findIndex((s) => s.store.kind === 'cold');
   let swept = false;
   let first = Number.POSITIVE_INFINITY;
+  let trips = 0;
   const sweptMass = input.stores.map(() => 0);
   const lags = input.stores.map(() => 0);
   let flowBefore = Number.NaN;
@@ -110,7 +118,7 @@ export function rollOut(
     };
     const point = machine.operate('discharge', outlets, input.ambient_K);
     const work = point.specificWork_J_kg * input.workFactor;
-    const flow = work > 0 ? (input.power_W + machine.auxiliary_running_W) / work : Infinity;
+    const flow = flowFor(input, work, Number.isFinite(flowBefore) ? flowBefore : 0);
     const drop = worstDrop(input, beds, flow);
     // Each margin is positive while its rule holds.
     const margins = [
@@ -140,6 +148,7 @@ export function rollOut(
       }
       const last = before[r] as number;
       // Broken at its very first test: there never was a discharge.
+      if (Number.isNaN(last) && (r === 0 || r === 1)) trips = t;
       times[r] = Number.isNaN(last)
         ? 0
         : at - ((at - (beforeAt[r] as number)) * margin) / (margin - last);
@@ -179,7 +188,20 @@ export function rollOut(
       cause = RULES[r] as EndCause;
     }
   });
-  return { times_s: times, end_s: end, ends_by: cause };
+  return { times_s: times, trips_s: trips, end_s: end, ends_by: cause };
+}
+
+/**
+ * Metered flow that gives the power at a work per kilogram at rated flow; Infinity where none does.
+ * Part load changes the work by a few per cent, so that each turn of the loop gains two digits.
+ */
+function flowFor(input: RolloutInput, work_J_kg: number, guess_kg_s: number): number {
+  if (!(work_J_kg > 0)) return Number.POSITIVE_INFINITY;
+  const plain = (input.power_W + input.machine.auxiliary_running_W) / work_J_kg;
+  if (input.partLoad === undefined) return plain;
+  let flow = guess_kg_s > 0 ? guess_kg_s : plain;
+  for (let i = 0; i < 4; i++) flow = plain / input.partLoad(flow);
+  return flow;
 }
 
 /** Steps all tubes of a store; returns the mixed outlet [K]. */
@@ -217,7 +239,9 @@ function stepStoreBeds(
     if (tube.wall !== undefined && steel !== null) {
       const { model } = tube.wall;
       const beside = beds[model.tube] as Float64Array;
-      exchangeAtWall(model, store.tables, beds[k] as Float64Array, steel, beside, step);
+      // The layers are the last streams, and this is the last of them.
+      const layers = beds.slice(k + 1 - model.layers.length, k + 1);
+      exchangeAtWall(model, store.tables, layers, steel, beside, step);
     }
     const weight = tube.area_share * flux;
     heat += weight * (out / substeps);

@@ -3,29 +3,17 @@ import type { DispatchAnswer } from '../estimate.js';
 import type { StoreTemperatures } from '../machine/machine.js';
 import type { Scan } from '../scan/scan.js';
 import type { Conditions } from '../track/conditions.js';
-import { meanFactor } from '../track/storeEstimate.js';
-import type { StoreState } from '../track/storeTracker.js';
 import type { UnitModel } from '../unitModel.js';
 import type { UnitState } from '../unitState.js';
+import { calibrate } from './calibration.js';
 import { centralHours, computeHours, type HoursInput } from './hours.js';
-import { machineFactor, stepMachineFactor } from './machineFactor.js';
+import { ageMachineFactor, stepMachineFactor } from './machineFactor.js';
+import { machineSpread, partLoadFactor } from './machineSpread.js';
 
 /** A rollout for the state of charge at least this often [s]. */
 const CHARGE_EVERY_S = 600;
 /** A jump of a store's state of charge beyond this asks for a rollout at once. */
 const CHARGE_JUMP = 0.05;
-
-export function meanFlowFactor(
-  model: UnitModel,
-  state: UnitState,
-): { factor: number; sigma: number } {
-  const all = model.stores.map((store, s) =>
-    meanFactor(store, state.stores[s] as StoreState, 'flow'),
-  );
-  const factor = all.reduce((sum, f) => sum + f.value, 0) / all.length;
-  const sigma = Math.sqrt(all.reduce((sum, f) => sum + f.sigma ** 2, 0)) / all.length / factor;
-  return { factor, sigma: Math.hypot(sigma, model.unit.estimator.machine_factor_sigma) };
-}
 
 export function learnMachine(
   model: UnitModel,
@@ -35,9 +23,9 @@ export function learnMachine(
   modeChanged: boolean,
   outlets: Record<Direction, StoreTemperatures>,
 ): void {
-  if (modeChanged) {
-    state.factors.charge.steady_s = 0;
-    state.factors.discharge.steady_s = 0;
+  for (const factor of [state.factors.charge, state.factors.discharge]) {
+    ageMachineFactor(factor, dt_s);
+    if (modeChanged) factor.steady_s = 0;
   }
   if (conditions.mode === 'stand' || !conditions.flowKnown || conditions.flowStandIn) return;
   if (!Number.isFinite(conditions.power_W)) return;
@@ -52,22 +40,19 @@ export function learnMachine(
   ).specificWork_J_kg;
   const sign = direction === 'charge' ? -1 : 1;
   const gross = Math.abs(conditions.power_W) + sign * machine.auxiliary_running_W;
-  stepMachineFactor(
-    state.factors[direction],
-    gross / (flow * work),
-    dt_s,
-    meanFlowFactor(model, state),
-  );
+  const model_J_kg = work * partLoadFactor(machineSpread(model.unit), direction, flow);
+  stepMachineFactor(state.factors[direction], gross / (flow * model_J_kg), dt_s, flow);
 }
 
-export function hoursInput(model: UnitModel, state: UnitState): HoursInput {
+/** What hours at a power are computed from, in the unit's present state. */
+export function hoursInput(model: UnitModel, state: UnitState, power_W: number): HoursInput {
   return {
     unit: model.unit,
     machine: model.machine,
     models: model.stores,
     states: state.stores,
     plenum_K: state.plenum_K,
-    workFactor: machineFactor(state.factors.discharge, meanFlowFactor(model, state)),
+    calibration: calibrate(model, state, power_W / model.unit.rated_power_W).joint,
     ambient_K: state.ambient_K,
   };
 }
@@ -83,7 +68,6 @@ export function stateOfCharge(
   model: UnitModel,
   state: UnitState,
   scan: Scan,
-  input: HoursInput,
   least: number,
   modeChanged: boolean,
 ): number {
@@ -95,6 +79,7 @@ export function stateOfCharge(
     scan.time_ms - last.time_ms >= CHARGE_EVERY_S * 1000 ||
     Math.abs(least - last.least) > CHARGE_JUMP;
   if (due) {
+    const input = hoursInput(model, state, unit.rated_power_W);
     const hours = centralHours(input, unit.rated_power_W).hours;
     state.charge = { value: hours / unit.rated_hours, time_ms: scan.time_ms, least };
     return state.charge.value;
@@ -111,8 +96,7 @@ export function hoursOf(
   if (!state.stores.every((store) => store.started)) {
     return powers_W.map((power) => unknownHours(model, power));
   }
-  const input = hoursInput(model, state);
-  return powers_W.map((power) => computeHours(input, power));
+  return powers_W.map((power) => computeHours(hoursInput(model, state, power), power));
 }
 
 /** Before every store has started anything between nothing and all is possible: nothing is firm. */

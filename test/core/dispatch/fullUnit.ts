@@ -20,5 +20,5 @@ export function watchedUnit(unit: UnitDefinition, fronts: Fronts, scans = 10): U
 }
 
 export function inputOf(unit: UnitDefinition, state: UnitState): HoursInput {
-  return hoursInput(unitModel(unit), state);
+  return hoursInput(unitModel(unit), state, unit.rated_power_W);
 }

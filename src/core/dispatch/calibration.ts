@@ -1,0 +1,117 @@
+import type { Direction } from '../definitions.js';
+import { meanFactor } from '../track/storeEstimate.js';
+import type { StoreModel, StoreState } from '../track/storeTracker.js';
+import type { UnitModel } from '../unitModel.js';
+import type { UnitState } from '../unitState.js';
+import { type Gaussian, independent, observe, transformed } from './gaussian.js';
+import { machineSpread } from './machineSpread.js';
+
+/** What meter, rock and machine are together taken to be, for a discharge at one power. */
+export interface Calibration {
+  /**
+   * Per store ln(travel per metered kilogram over that of the model), then
+   * ln(work per metered kilogram over that of the model at rated flow): joint, one vector.
+   */
+  readonly joint: Gaussian;
+  /** Of each store ln(heat capacity over the configured one) and its sigma. */
+  readonly capacity: readonly { readonly log: number; readonly sigma: number }[];
+}
+
+/**
+ * Error of a flow meter of the usual classes: +/-2 % of the reading, and as much again from no load
+ * to rated flow, as two sigmas.
+ */
+const METER_SIGMA = 0.01;
+const METER_SLOPE_SIGMA = 0.01;
+/**
+ * A meter may be fouled or moved, which is likelier than rock of four sigmas: its sigma is at least
+ * this share of the mean ln(flow factor) of the stores.
+ */
+const METER_BROKEN = 0.5;
+/**
+ * Gas flows faster and slower in the rings of a bed of random packing, by 1 to 2 % (common
+ * practice); a string shows that of its own place. One sigma of its deviation from its tube's mean.
+ */
+const STRING_FLOW_SIGMA = 0.01;
+/** Relative load of a direction in which nothing was learned yet. */
+const USUAL_LOAD = 0.9;
+
+/**
+ * Joint linear-Gaussian estimate of what a meter, the rock and the machine share. With, in ln,
+ * b the meter (true over metered flow) and its slope with load r, c_s the heat capacity of store s,
+ * e_d the work of the machine in direction d:
+ *
+ *   travel per metered kilogram   ln f_s  = b + slope r - c_s      the tubes' mean flow factor
+ *   work per metered kilogram     ln k_d  = b + slope r_d + e_d    the learned machine factor
+ *
+ * Hours need f_s/k_discharge, from which the meter drops out; they rest on the rock and on the
+ * machine. Priors are the classes of the instruments, `heat_capacity_sigma` and the spread of the
+ * machine, whose errors in charging and discharging hang together (see machineSpread).
+ *
+ * @param load flow of the discharge asked about, over rated flow [-]
+ */
+export function calibrate(model: UnitModel, state: UnitState, load: number): Calibration {
+  const spread = machineSpread(model.unit);
+  const stores = model.stores.length;
+  const travel = model.stores.map((store, s) => meanFlow(store, state.stores[s] as StoreState));
+  const shown = travel.reduce((sum, f) => sum + f.log, 0) / stores;
+  const sigmaC = model.unit.estimator.heat_capacity_sigma;
+  // b, slope, c_1 .. c_n, e_charge, e_discharge
+  const charge = 2 + stores;
+  const discharge = charge + 1;
+  const g = independent([
+    Math.max(METER_SIGMA, METER_BROKEN * Math.abs(shown)) ** 2,
+    METER_SLOPE_SIGMA ** 2,
+    ...model.stores.map(() => sigmaC ** 2),
+    spread.variance.charge,
+    spread.variance.discharge,
+  ]);
+  (g.covariance[charge] as Float64Array)[discharge] = spread.covariance;
+  (g.covariance[discharge] as Float64Array)[charge] = spread.covariance;
+  const row = (entries: Readonly<Record<number, number>>): number[] =>
+    Array.from({ length: 4 + stores }, (_, i) => entries[i] ?? 0);
+  const loadOf = (d: Direction): number => {
+    const { flow_kg_s } = state.factors[d];
+    return flow_kg_s > 0 ? flow_kg_s / spread.ratedFlow_kg_s : USUAL_LOAD;
+  };
+  // The tubes' factors are of the flow that moved the fronts last.
+  const last: Direction =
+    state.factors.discharge.age_s < state.factors.charge.age_s ? 'discharge' : 'charge';
+  travel.forEach((f, s) => {
+    observe(g, row({ 0: 1, 1: loadOf(last), [2 + s]: -1 }), f.log, f.variance);
+  });
+  for (const d of ['charge', 'discharge'] as const) {
+    const { log, variance } = state.factors[d];
+    if (variance === null) continue;
+    const r = loadOf(d);
+    // Learned in part load, the loop's loss adds what it is not known to follow.
+    const loss = spread.partLoad[d] * spread.partLoadSigma * (r * r - load * load);
+    const noise = variance + spread.outlets[d] ** 2 + (d === 'discharge' ? loss ** 2 : 0);
+    observe(g, row({ 0: 1, 1: r, [d === 'charge' ? charge : discharge]: 1 }), log, noise);
+  }
+  if (state.factors.discharge.variance === null) {
+    const loss = spread.partLoad.discharge * spread.partLoadSigma * (1 - load * load);
+    (g.covariance[discharge] as Float64Array)[discharge]! += loss * loss;
+  }
+  const joint = transformed(g, [
+    ...model.stores.map((_, s) => row({ 0: 1, 1: load, [2 + s]: -1 })),
+    row({ 0: 1, 1: load, [discharge]: 1 }),
+  ]);
+  return {
+    joint,
+    capacity: model.stores.map((_, s) => ({
+      log: g.mean[2 + s] as number,
+      sigma: Math.sqrt(Math.max(0, g.covariance[2 + s]?.[2 + s] as number)),
+    })),
+  };
+}
+
+/** ln of a store's mean flow factor, with what the strings' places leave open. */
+function meanFlow(store: StoreModel, state: StoreState): { log: number; variance: number } {
+  const { value, sigma } = meanFactor(store, state, 'flow');
+  const squares = store.tubes.reduce((sum, tube) => sum + tube.string.area_share ** 2, 0);
+  return {
+    log: Math.log(value),
+    variance: (sigma / value) ** 2 + STRING_FLOW_SIGMA ** 2 * squares,
+  };
+}

@@ -1,0 +1,130 @@
+import { type BedWork, createBedWork } from '../bed/kernel.js';
+import { enthalpyAt, temperatureAt } from '../bed/tables.js';
+import { cellCentres, meanFactor } from '../track/storeEstimate.js';
+import type { StoreModel, StoreState } from '../track/storeTracker.js';
+import { streamsOf } from '../track/streams.js';
+import type { TubeModel } from '../track/tube.js';
+import type { HoursInput } from './hours.js';
+import { machineSpread, partLoadFactor } from './machineSpread.js';
+import { refined } from './refine.js';
+import { type RolloutInput, type RolloutResult, type RolloutStore, rollOut } from './rollout.js';
+
+const STEP_S = 300;
+const MOST_RATED = 4;
+/** Smooth bumps per store along which the sensitivity to the profile is taken. */
+export const BUMPS = 8;
+export const BUMP_K = 2;
+
+/** What differs from the estimate: of one store, or the machine's work in ln. */
+export interface Perturbation {
+  readonly store?: number;
+  readonly bump?: number;
+  readonly flow?: number;
+  readonly transfer?: number;
+  readonly work?: number;
+}
+
+export interface Roller {
+  /** Longest time that is rolled out [s]. */
+  readonly most_s: number;
+  /** On the estimate's own cells: two rollouts differ in nothing but what is perturbed. */
+  roll(change?: Perturbation): RolloutResult;
+  /** On cells of half the length: see `refined`. */
+  fine(change?: Perturbation): RolloutResult;
+}
+
+/** Rollouts of one unit's present state at one net power [W]. */
+export function createRoller(input: HoursInput, power_W: number): Roller {
+  const worksOf = (parts: number): BedWork[][] =>
+    input.models.map((model) =>
+      // The layers at the wall besides.
+      Array.from({ length: model.tubes.length + (model.wall?.layers.length ?? 0) }, () =>
+        createBedWork(parts * (model.tubes[0] as TubeModel).layout.cells),
+      ),
+    );
+  const works = worksOf(1);
+  const most_s =
+    MOST_RATED * input.unit.rated_hours * 3600 * Math.max(1, input.unit.rated_power_W / power_W);
+  const stores = input.models.map((model, s) =>
+    rolloutStore(
+      model,
+      input.states[s] as StoreState,
+      input.plenum_K[s] as number,
+      input.calibration?.mean[s] ?? null,
+    ),
+  );
+  const spread = machineSpread(input.unit);
+  const log = input.calibration?.mean[input.models.length] ?? 0;
+  const common: Omit<RolloutInput, 'stores' | 'workFactor'> = {
+    unit: input.unit,
+    machine: input.machine,
+    partLoad: (flow_kg_s) => partLoadFactor(spread, 'discharge', flow_kg_s),
+    power_W,
+    ambient_K: input.ambient_K,
+    step_s: STEP_S,
+    most_s,
+  };
+  const rollWith = (change: Perturbation, parts: number, works: readonly BedWork[][]) => {
+    const changed = stores.map((store, s) => {
+      const own =
+        s === change.store ? perturb(input.models[s] as StoreModel, store, change) : store;
+      return parts === 1 ? own : refined(own);
+    });
+    const workFactor = Math.exp(log + (change.work ?? 0));
+    return rollOut({ ...common, stores: changed, workFactor }, works);
+  };
+  const fineWorks = worksOf(2);
+  return {
+    most_s,
+    roll: (change = {}) => rollWith(change, 1, works),
+    fine: (change = {}) => rollWith(change, 2, fineWorks),
+  };
+}
+
+/** @param logFlow ln of the store's mean flow factor where more is known than the tubes tell */
+function rolloutStore(
+  model: StoreModel,
+  state: StoreState,
+  plenum_K: number,
+  logFlow: number | null,
+): RolloutStore {
+  const own = logFlow === null ? 1 : Math.exp(logFlow) / meanFactor(model, state, 'flow').value;
+  return {
+    store: model.store,
+    tables: model.tables,
+    plenum_K,
+    tubes: streamsOf(model, state).map(({ share, ...stream }) => ({
+      ...stream,
+      flowFactor: stream.flowFactor * own,
+      area_share: share,
+    })),
+  };
+}
+
+function perturb(model: StoreModel, store: RolloutStore, change: Perturbation): RolloutStore {
+  const weights = change.bump === undefined ? null : bumpWeights(model, change.bump);
+  return {
+    ...store,
+    tubes: store.tubes.map((tube) => ({
+      ...tube,
+      flowFactor: tube.flowFactor * Math.exp(change.flow ?? 0),
+      heatTransferFactor: tube.heatTransferFactor * Math.exp(change.transfer ?? 0),
+      enthalpy:
+        weights === null
+          ? tube.enthalpy
+          : tube.enthalpy.map((h, i) =>
+              enthalpyAt(
+                model.tables,
+                temperatureAt(model.tables, h) + BUMP_K * (weights[i] as number),
+              ),
+            ),
+    })),
+  };
+}
+
+/** Overlapping triangular bumps that add up to one along the bed. */
+export function bumpWeights(model: StoreModel, bump: number): Float64Array {
+  const x = cellCentres(model);
+  const pitch = model.store.bed.length_m / (BUMPS - 1);
+  return x.map((at) => Math.max(0, 1 - Math.abs(at - bump * pitch) / pitch));
+}
