@@ -64,8 +64,10 @@ export function commonFigures(
   }
   const broken = results.reduce((sum, r) => sum + r.not_finite, 0);
   if (broken > 0) out.push(figure('estimates that are not finite', broken, '', ZERO));
-  // Those that are zero stand with all runs together.
-  out.push(...unsoundFigures(results).filter((f) => f.value !== 0));
+  // Their goals stand with all runs together; here, which row they come from.
+  for (const f of unsoundFigures(results)) {
+    if (f.value !== 0) out.push(figure(f.name, f.value, f.unit, null, f.note));
+  }
   return out;
 }
 

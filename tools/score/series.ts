@@ -120,7 +120,7 @@ export function runSeries(unit: UnitDefinition, recording: Recording, options: R
     lines.take(reading.values, (n - last) * period_s);
     const before = last;
     last = n;
-    lookAt(state, n, unsound);
+    lookAt(state, unsound);
     if (!finite(estimate)) notFinite++;
     for (const [id, store] of Object.entries(estimate.stores)) {
       note(stores[id]!, n, store, lines.soc(id));

@@ -2,6 +2,8 @@ import type { UnitState } from '../../src/core/unit.js';
 
 /** Scans after which the covariance of some tube, or any state, was not what it must be. */
 export interface Unsound {
+  /** Scans that were looked at. */
+  scans: number;
   /** An element that is not that of its mirror place, to the bit. */
   not_symmetric: number;
   /** A variance below zero. */
@@ -17,6 +19,7 @@ export interface Unsound {
 }
 
 export const sound = (): Unsound => ({
+  scans: 0,
   not_symmetric: 0,
   negative: 0,
   indefinite: 0,
@@ -36,9 +39,11 @@ const FACTORISE_EVERY = 30;
  */
 const ROUNDING = 1e-9;
 
-/** Looks at the state after scan `n` and counts what is wrong with it. */
-export function lookAt(state: UnitState, n: number, counts: Unsound): void {
+/** Looks at the state after a scan and counts what is wrong with it; eigenvalues with the first and every thirtieth. */
+export function lookAt(state: UnitState, counts: Unsound): void {
   const now = sound();
+  const factorise = counts.scans % FACTORISE_EVERY === 0;
+  counts.scans++;
   for (const store of state.stores) {
     if (!store.started) continue;
     for (const tube of store.tubes) {
@@ -52,7 +57,7 @@ export function lookAt(state: UnitState, n: number, counts: Unsound): void {
       for (let i = 0; i < size; i++) {
         if (!(covariance[i * size + i]! >= 0)) now.negative = 1;
       }
-      if (n % FACTORISE_EVERY !== 0) continue;
+      if (!factorise) continue;
       now.factorised = 1;
       if (nonNegative(covariance, size, ROUNDING)) continue;
       now.indefinite = 1;

@@ -61,8 +61,6 @@ export interface RowResult {
   readonly rejections: readonly { sensor: string; verdict: string; from_h: number; to_h: number }[];
   readonly not_finite: number;
   readonly unsound: Unsound;
-  /** Scans that were taken in. */
-  readonly scans: number;
   /** Figures of the scenario's own; null where the run has none. */
   readonly own: Readonly<Record<string, number | null>>;
 }
@@ -152,7 +150,6 @@ export function tally(series: Series, seed: number, own: RowResult['own'] = {}):
     })),
     not_finite: series.not_finite,
     unsound: series.unsound,
-    scans: Object.values(series.stores)[0]!.soc.filter((v) => !Number.isNaN(v)).length,
     own,
   };
 }

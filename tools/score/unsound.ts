@@ -6,7 +6,7 @@ const NONE: Goal = { most: 0, each: true };
 /** Scans after which the state was not what a state must be, of some runs together. */
 export function unsoundFigures(results: readonly RowResult[]): Figure[] {
   const sum = (of: (r: RowResult) => number) => results.reduce((total, r) => total + of(r), 0);
-  const scans = `of ${sum((r) => r.scans)} scans`;
+  const scans = `of ${sum((r) => r.unsound.scans)} scans`;
   return [
     figure(
       'scans with NaN in a state',
@@ -41,5 +41,5 @@ export function unsoundFigures(results: readonly RowResult[]): Figure[] {
 
 function worstOf(results: readonly RowResult[]): string {
   const least = Math.min(0, ...results.map((r) => r.unsound.least));
-  return least === 0 ? 'within rounding' : `${least.toExponential(1)} of the largest variance`;
+  return least === 0 ? 'within rounding' : `${least.toExponential(1)} as correlation`;
 }
