@@ -1,5 +1,6 @@
 import type { RejectedSensor } from '../../core/estimate.js';
-import type { SensorWorth, StoreWorth, StringWorth } from '../../core/worth/sensorWorth.js';
+import type { SensorWorth, StoreWorth } from '../../core/worth/sensorWorth.js';
+import type { Spread } from '../../core/worth/spread.js';
 import { table } from '../table.js';
 
 /** What `rockhour sensors` answers; with --json as it is. */
@@ -26,93 +27,96 @@ const HARDLY = 0.01;
 /** So many are listed even where none is missed much. */
 const LISTED = 5;
 const WIDTH = 100;
+const SIGMA = ['change of sigma %', 'state of charge +/- %', 'worst +/- %'];
+const DOING = { charge: 'charging', discharge: 'discharging', stand: 'standing' } as const;
 
+/**
+ * The answer as maintenance reads it.
+ * @param all lists every thermocouple, also those that are hardly missed
+ */
 export function sensorsText(answer: SensorsAnswer, all: boolean): string {
   const stores = answer.stores.map((store) => storeText(store, answer, all));
-  const end =
-    '+/- is one standard deviation of the estimate (rms over the time weighed; worst = its greatest).\n' +
-    'A loss is weighed a while after it happens, when what was known before has left the bed.';
-  return [head(answer), ...stores, end].join('\n\n');
+  return [head(answer), ...stores].join('\n\n');
 }
 
 function head({ unit, over }: SensorsAnswer): string {
-  if (over.kind === 'recording') {
-    return `${unit}: thermocouples weighed over the second half of ${over.recording} (${over.covered_h.toFixed(1)} h)`;
-  }
-  const { charge_h, discharge_h, stand_h } = over;
-  return `${unit}: thermocouples weighed over a settled day: ${charge_h.toFixed(1)} h charging, ${discharge_h.toFixed(1)} h discharging at rated power, ${stand_h.toFixed(1)} h standing`;
+  const along =
+    over.kind === 'recording'
+      ? `the second half of ${over.recording} (${over.covered_h.toFixed(1)} h)`
+      : `a settled day: ${over.charge_h.toFixed(1)} h charging, ${over.discharge_h.toFixed(1)} h discharging at rated power, ${over.stand_h.toFixed(1)} h standing`;
+  return [
+    `${unit}: what its thermocouples are worth, over`,
+    along,
+    'Sigma, or +/-, is one standard deviation of the estimate, rms over that time. A loss is counted once',
+    'what was known before it has left the bed: at first it costs less.',
+  ].join('\n');
 }
 
-const percent = (share: number, digits = 2): string => `${(share * 100).toFixed(digits)} %`;
+const percent = (share: number, digits = 2): string => (share * 100).toFixed(digits);
 const centimetres = (m: number | null): string => (m === null ? '-' : (m * 100).toFixed(1));
-const signed = (share: number): string => {
-  const text = (share * 100).toFixed(1);
-  return share > 0 ? `+${text} %` : `${text} %`;
-};
+const signed = (share: number): string => `${share > 0 ? '+' : ''}${percent(share, 1)}`;
 
 function storeText(store: StoreWorth, answer: SensorsAnswer, all: boolean): string {
-  const { all: now } = store;
-  const title = `Store ${store.store}`;
   const inUse = store.sensors.filter((s) => s.in_use);
   const out = store.sensors.filter((s) => !s.in_use);
-  const hours = now.soc_sigma_rms * answer.full_hours;
+  const title = `Store ${store.store}`;
   const parts = [
     `${title}\n${'-'.repeat(title.length)}`,
-    `With ${inUse.length} thermocouples on ${store.strings.length} ${store.strings.length === 1 ? 'string' : 'strings'}: state of charge +/-${percent(now.soc_sigma_rms)} (worst ${percent(now.soc_sigma_worst)}),\n` +
-      `front +/-${centimetres(now.position_sigma_rms_m)} cm (worst ${centimetres(now.position_sigma_worst_m)} cm). Where this store ends the discharge that is +/-${hours.toFixed(3)} h at rated power.`,
+    now(store, inUse.length, answer.full_hours),
     losses(store, inUse, all),
     ...(out.length === 0 ? [] : [repairs(out, answer.rejected)]),
     wholes(store, answer.full_hours),
-    ...store.strings
-      .flatMap((string) => string.one_more.slice(0, 1))
-      .slice(0, 1)
-      .map(() => oneMore(store)),
+    ...(store.strings.some((string) => string.one_more.length > 0) ? [oneMore(store)] : []),
   ];
   return parts.join('\n\n');
 }
 
-const DOING = { charge: 'charging', discharge: 'discharging', stand: 'standing' } as const;
+function now(store: StoreWorth, inUse: number, full_hours: number): string {
+  const { soc_sigma_rms, soc_sigma_worst, position_sigma_rms_m, position_sigma_worst_m } =
+    store.all;
+  const count = store.strings.length;
+  return table(
+    [`sigma with all ${inUse} on ${count} ${count === 1 ? 'string' : 'strings'}`, 'rms', 'worst'],
+    [
+      ['state of charge %', percent(soc_sigma_rms), percent(soc_sigma_worst)],
+      ['front position cm', centimetres(position_sigma_rms_m), centimetres(position_sigma_worst_m)],
+      [
+        'hours at rated power, where this store ends them',
+        (soc_sigma_rms * full_hours).toFixed(3),
+        (soc_sigma_worst * full_hours).toFixed(3),
+      ],
+    ],
+  );
+}
 
 function losses(store: StoreWorth, inUse: readonly SensorWorth[], all: boolean): string {
-  const missed = inUse.filter((s) => s.rise >= HARDLY);
-  const shown = all ? inUse : inUse.slice(0, Math.max(LISTED, missed.length));
+  const missed = inUse.filter((s) => s.rise >= HARDLY).length;
+  const shown = inUse.slice(0, all ? inUse.length : Math.max(LISTED, missed));
   const rest = inUse.slice(shown.length);
-  const strings = new Map(store.strings.map((string) => [string.id, string]));
-  const rows = shown.map((s) => {
-    const whole = strings.get(s.string_id) as StringWorth;
-    return [
-      s.id,
-      s.string_id,
-      s.position_m.toFixed(2),
-      signed(s.rise),
-      percent(s.store.soc_sigma_rms),
-      percent(s.store.soc_sigma_worst),
-      `${centimetres(whole.all.position_sigma_rms_m)} -> ${centimetres(s.string.position_sigma_rms_m)}`,
-      s.most_in === null ? '-' : DOING[s.most_in],
-    ];
-  });
-  const header = [
-    'if lost',
-    'string',
-    'x m',
-    'more sigma',
-    'charge +/-',
-    'worst',
-    'front of its string cm',
-  ];
+  const strings = new Map(store.strings.map((string) => [string.id, string.all]));
+  const rows = shown.map((s) => [
+    s.id,
+    s.string_id,
+    s.position_m.toFixed(2),
+    signed(s.rise),
+    percent(s.store.soc_sigma_rms),
+    percent(s.store.soc_sigma_worst),
+    `${centimetres(strings.get(s.string_id)?.position_sigma_rms_m ?? null)} -> ${centimetres(s.string.position_sigma_rms_m)}`,
+    s.most_in === null ? '-' : DOING[s.most_in],
+  ]);
+  const header = ['one lost', 'string', 'x m', ...SIGMA];
+  const share = percent(HARDLY, 0);
   const lines = [
-    missed.length === 0
-      ? `Any one of them can be lost: sigma of the state of charge rises by less than ${percent(HARDLY, 0)}.`
-      : `${missed.length} would be missed; the most precious first.`,
-    table([...header, 'tells most'], rows),
+    missed === 0
+      ? `Any one thermocouple can be lost: sigma of the state of charge rises by less than ${share} % of itself.`
+      : `Losing one of ${missed} raises sigma of the state of charge by ${share} % of itself or more.`,
+    'The most precious first:',
+    table([...header, 'its string: front +/- cm', 'felt most while'], rows),
   ];
-  if (rest.length > 0) {
-    const most = Math.max(...rest.map((s) => s.rise));
-    lines.push(
-      wrap(
-        `Hardly missed, one at a time (${signed(most)} at most): ${rest.map((s) => s.id).join(', ')}`,
-      ),
-    );
+  const [most] = rest;
+  if (most !== undefined) {
+    const names = rest.map((s) => s.id).join(', ');
+    lines.push(wrap(`Hardly missed, one at a time (${signed(most.rise)} % at most): ${names}`));
   }
   return lines.join('\n');
 }
@@ -127,53 +131,61 @@ function repairs(out: readonly SensorWorth[], rejected: readonly RejectedSensor[
     signed(s.rise),
     percent(s.store.soc_sigma_rms),
   ]);
-  return `Out of use at the end of the recording; what repair would do:\n${table(['if repaired', 'string', 'x m', 'now', 'sigma', 'charge +/-'], rows)}`;
+  return [
+    'Rejected at the end of the recording and not counted above; what repair would do:',
+    table(['repaired', 'string', 'x m', 'now', ...SIGMA.slice(0, 2)], rows),
+  ].join('\n');
 }
 
+/** Cards and strings; a card that is all of a string makes the string's row needless. */
 function wholes(store: StoreWorth, full_hours: number): string {
-  const row = (name: string, what: string, of: { store: StoreWorth['all']; rise: number }) => [
+  const row = (name: string, of: { readonly store: Spread; readonly rise: number }) => [
     name,
-    what,
     signed(of.rise),
     percent(of.store.soc_sigma_rms),
     percent(of.store.soc_sigma_worst),
-    (of.store.soc_sigma_rms * full_hours).toFixed(3),
     centimetres(of.store.position_sigma_rms_m),
+    (of.store.soc_sigma_rms * full_hours).toFixed(3),
   ];
-  const rows = [
-    ...store.groups.map((g) =>
-      row(`card ${g.id}`, `${g.thermocouples} on ${g.strings.join(', ')}`, g),
-    ),
-    ...store.strings.map((s) =>
-      row(`string ${s.id}`, `${s.thermocouples} at r = ${s.radius_m} m`, s),
-    ),
-  ];
-  const header = [
-    'if all of it is lost',
-    'thermocouples',
-    'more sigma',
-    'charge +/-',
-    'worst',
-    'hours +/-',
-    'front cm',
-  ];
-  return table(header, rows);
+  const counts = new Map(store.strings.map((string) => [string.id, string.thermocouples]));
+  const covered = new Set<string>();
+  const groups = store.groups.map((group) => {
+    const [only] = group.strings;
+    const whole = group.strings.length === 1 && counts.get(only as string) === group.thermocouples;
+    if (whole) covered.add(only as string);
+    const what = whole ? `all of ${only}` : `of ${group.strings.join(', ')}`;
+    return row(`group ${group.id}: ${group.thermocouples}, ${what}`, group);
+  });
+  const strings = store.strings
+    .filter(({ id }) => !covered.has(id))
+    .map((string) => row(`string ${string.id}: ${string.thermocouples}`, string));
+  const header = ['all of these lost', ...SIGMA, 'front +/- cm', 'hours +/-'];
+  return table(header, [...groups, ...strings]);
 }
 
-/** Changes of sigma by place, one column per string, the best place of each said first. */
+/** The best place on each string, and the change of sigma by place. */
 function oneMore(store: StoreWorth): string {
-  const lines = store.strings.map((string) => {
-    const best = string.one_more.reduce((a, b) => (b.rise < a.rise ? b : a));
-    return `${string.id}: best at x = ${best.position_m.toFixed(2)} m, sigma ${signed(best.rise)}, front of the string ${centimetres(string.all.position_sigma_rms_m)} -> ${centimetres(best.string.position_sigma_rms_m)} cm`;
+  const best = store.strings.map((string) => {
+    const place = string.one_more.reduce((a, b) => (b.rise < a.rise ? b : a));
+    return [
+      string.id,
+      place.position_m.toFixed(2),
+      signed(place.rise),
+      percent(place.store.soc_sigma_rms),
+      `${centimetres(string.all.position_sigma_rms_m)} -> ${centimetres(place.string.position_sigma_rms_m)}`,
+    ];
   });
   const places = store.strings[0]?.one_more ?? [];
   const rows = places.map(({ position_m }, i) => [
     position_m.toFixed(2),
     ...store.strings.map((string) => signed(string.one_more[i]?.rise ?? 0)),
   ]);
+  const header = ['best on', 'x m', ...SIGMA.slice(0, 2), 'that string: front +/- cm'];
   return [
-    'One thermocouple more, on a card of its own; change of sigma of the state of charge:',
-    ...lines,
+    'One thermocouple more, on a card of its own:',
+    table(header, best),
+    '',
+    'Change of sigma % by its place and string:',
     table(['x m', ...store.strings.map((s) => s.id)], rows),
   ].join('\n');
 }
@@ -182,11 +194,11 @@ function wrap(text: string): string {
   const lines: string[] = [];
   let line = '';
   for (const word of text.split(' ')) {
-    if (line !== '' && line.length + word.length + 1 > WIDTH) {
+    if (line.length + word.length + 1 > WIDTH) {
       lines.push(line);
-      line = '  ';
+      line = ' ';
     }
-    line += line.trim() === '' ? `${line}${word}` : ` ${word}`;
+    line = line === '' ? word : `${line} ${word}`;
   }
   return [...lines, line].join('\n');
 }

@@ -59,7 +59,7 @@ export interface StoreWorth {
   readonly store: string;
   /** With all thermocouples that are in use. */
   readonly all: Spread;
-  /** The most precious first. */
+  /** Those in use first, the most precious first. */
   readonly sensors: readonly SensorWorth[];
   readonly groups: readonly GroupWorth[];
   readonly strings: readonly StringWorth[];
@@ -295,7 +295,10 @@ function answerOf(store: StoreModel, variants: Variants, options: WorthOptions):
   return {
     store: store.store.id,
     all,
-    sensors: sensors.sort((a, b) => Math.abs(b.rise) - Math.abs(a.rise)),
+    // In use before out of use; then the loss that costs, or the repair that gains, the most.
+    sensors: sensors.sort((a, b) =>
+      a.in_use !== b.in_use ? (a.in_use ? -1 : 1) : a.in_use ? b.rise - a.rise : a.rise - b.rise,
+    ),
     groups: [...variants.groups].map(([id, variant]): GroupWorth => {
       const { string, ...rest } = changed(variant);
       const of = store.store.strings.filter((t) => t.thermocouples.some((c) => c.group === id));
