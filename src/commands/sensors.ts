@@ -1,15 +1,12 @@
 import { setImmediate } from 'node:timers/promises';
 import type { Command } from 'commander';
 import type { UnitDefinition } from '../core/definitions.js';
-import type { StoreModel } from '../core/track/storeTracker.js';
-import { type UnitModel, unitModel } from '../core/unitModel.js';
-import { type Course, cycleCourse } from '../core/worth/course.js';
 import { courseOf, LEAST_COURSE_S, recordCourse, takeScan } from '../core/worth/recordedCourse.js';
-import { type StoreWorth, weighSensors } from '../core/worth/sensorWorth.js';
+import { dayWeighing, type UnitWorth, type Weighing, weighUnit } from '../core/worth/unitWorth.js';
 import { RockhourError } from '../errors.js';
 import { Interrupt } from './interrupt.js';
 import { startProgress } from './progress.js';
-import { type SensorsAnswer, sensorsText } from './sensors/text.js';
+import { sensorsText } from './sensors/text.js';
 import { loadUnit } from './site.js';
 import { tellCounts, walkRecording } from './walk.js';
 
@@ -23,25 +20,16 @@ interface SensorsOptions {
   readonly json?: boolean;
 }
 
-type Weighed = Pick<SensorsAnswer, 'over' | 'rejected'> & { readonly course: Course };
+/** Parts of the progress bar. */
+const PARTS = 1000;
+/** Longest time without a turn of the event loop [ms]. */
+const TURN_MS = 100;
 
-function overCycle(model: UnitModel): Weighed {
-  const { course, cycle } = cycleCourse(model);
-  let day_h = 0;
-  for (const step of course.steps.slice(course.weigh_from)) {
-    day_h += (step.drives[0]?.dt_s ?? 0) / 3600;
-  }
-  const charge_h = cycle.charge.hours;
-  const discharge_h = cycle.discharge.hours;
-  const stand_h = day_h - charge_h - discharge_h;
-  return { course, over: { kind: 'cycle', charge_h, discharge_h, stand_h }, rejected: [] };
-}
-
-async function overRecording(
+async function recordingWeighing(
   unit: UnitDefinition,
   recording: string,
   otherChannels: ReadonlySet<string>,
-): Promise<Weighed> {
+): Promise<Weighing> {
   const recorder = recordCourse(unit);
   const reader = await walkRecording(recording, unit, otherChannels, (scan) => {
     takeScan(recorder, scan);
@@ -52,35 +40,33 @@ async function overRecording(
     throw new RockhourError(
       'RECORDING_MALFORMED',
       `${recording} covers less than ${LEAST_COURSE_S / 3600} h since every store had readings`,
-      { advice: 'Give a longer recording, best of a whole cycle, or none for a settled cycle.' },
+      { advice: 'Give a longer recording, best of a whole cycle, or none for a settled day.' },
     );
   }
   const { course, rejected, covered_s } = found;
-  return { course, over: { kind: 'recording', recording, covered_h: covered_s / 3600 }, rejected };
+  return { course, rejected, over: { kind: 'recording', recording, covered_h: covered_s / 3600 } };
 }
 
-/** Drains a store's weighing with a progress bar; a signal stops it. */
+/** Drains the weighing with a progress bar; a signal stops it. */
 async function weigh(
-  model: UnitModel,
-  s: number,
-  { course, rejected }: Weighed,
+  unit: UnitDefinition,
+  weighing: Weighing,
+  stores: readonly number[],
   places: number,
-): Promise<StoreWorth> {
-  const out_of_use = new Set(rejected.map(({ id }) => id));
-  const id = model.unit.stores[s]?.id ?? '';
-  const steps = 1000;
-  const progress = startProgress(id, steps);
+): Promise<UnitWorth> {
+  const progress = startProgress(unit.id, PARTS);
   const interrupt = new Interrupt();
   interrupt.start();
   try {
-    const run = weighSensors(model.stores[s] as StoreModel, s, course, { places, out_of_use });
+    const run = weighUnit(unit, weighing, stores, places);
     let turned_ms = performance.now();
     for (;;) {
       const next = run.next();
       if (next.done) return next.value;
-      if (performance.now() - turned_ms < 100) continue;
-      interrupt.check(() => `${Math.floor(next.value * 100)} % through store ${id}`);
-      progress.update(Math.min(steps, Math.round(next.value * steps)));
+      if (performance.now() - turned_ms < TURN_MS) continue;
+      interrupt.check(() => `after ${Math.floor(next.value * 100)} % of the weighing`);
+      progress.update(Math.min(PARTS, Math.round(next.value * PARTS)));
+      // A turn of the event loop, or an interrupt at the terminal would wait for the end.
       await setImmediate();
       turned_ms = performance.now();
     }
@@ -98,33 +84,26 @@ function parsePlaces(text: string): number {
   );
 }
 
+/** Indices of the stores that are to be weighed. */
+function chooseStores(unit: UnitDefinition, id: string | undefined): number[] {
+  const all = unit.stores.map((_, s) => s);
+  if (id === undefined) return all;
+  const chosen = all.filter((s) => unit.stores[s]?.id === id);
+  if (chosen.length > 0) return chosen;
+  const ids = unit.stores.map((store) => store.id).join(', ');
+  throw new RockhourError('USAGE', `--store is ${JSON.stringify(id)}; unit ${unit.id} has ${ids}`);
+}
+
 async function sensors(options: SensorsOptions): Promise<void> {
   const places = parsePlaces(options.places);
   const { unit, otherChannels } = loadUnit(options.config, options.unit);
-  const ids = unit.stores.map(({ id }) => id);
-  const chosen = options.store === undefined ? ids : ids.filter((id) => id === options.store);
-  if (chosen.length === 0) {
-    throw new RockhourError(
-      'USAGE',
-      `--store is ${JSON.stringify(options.store)}; unit ${unit.id} has ${ids.join(', ')}`,
-    );
-  }
-  const model = unitModel(unit);
-  const weighed =
+  const stores = chooseStores(unit, options.store);
+  const weighing =
     options.recording === undefined
-      ? overCycle(model)
-      : await overRecording(unit, options.recording, otherChannels);
-  const stores: StoreWorth[] = [];
-  for (const id of chosen) stores.push(await weigh(model, ids.indexOf(id), weighed, places));
-  const { over, rejected } = weighed;
-  const answer: SensorsAnswer = {
-    unit: unit.id,
-    over,
-    full_hours: model.fullHours,
-    rejected,
-    stores,
-  };
-  const text = options.json ? JSON.stringify(answer) : sensorsText(answer, options.all ?? false);
+      ? dayWeighing(unit)
+      : await recordingWeighing(unit, options.recording, otherChannels);
+  const worth = await weigh(unit, weighing, stores, places);
+  const text = options.json ? JSON.stringify(worth) : sensorsText(worth, options.all ?? false);
   process.stdout.write(`${text}\n`);
 }
 

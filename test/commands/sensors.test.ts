@@ -35,7 +35,7 @@ describe('rockhour sensors', () => {
     const { code, stdout, stderr } = await sensors('--store', 'hot', '--places', '3', '--json');
     expect({ code, stderr }).toEqual({ code: 0, stderr: '' });
     const answer = JSON.parse(stdout);
-    expect(answer).toMatchObject({ unit: 'vellmoor', over: { kind: 'cycle' }, rejected: [] });
+    expect(answer).toMatchObject({ unit: 'vellmoor', over: { kind: 'day' }, rejected: [] });
     expect(answer.full_hours).toBeGreaterThan(4);
     expect(answer.stores).toHaveLength(1);
     const [{ all, sensors: weighed, groups, strings }] = answer.stores;

@@ -1,26 +1,8 @@
 import type { RejectedSensor } from '../../core/estimate.js';
 import type { SensorWorth, StoreWorth } from '../../core/worth/sensorWorth.js';
 import type { Spread } from '../../core/worth/spread.js';
+import type { UnitWorth, WorthOver } from '../../core/worth/unitWorth.js';
 import { table } from '../table.js';
-
-/** What `rockhour sensors` answers; with --json as it is. */
-export interface SensorsAnswer {
-  readonly unit: string;
-  /** What the sigmas were followed along. */
-  readonly over:
-    | {
-        readonly kind: 'cycle';
-        readonly charge_h: number;
-        readonly discharge_h: number;
-        readonly stand_h: number;
-      }
-    | { readonly kind: 'recording'; readonly recording: string; readonly covered_h: number };
-  /** Hours at rated power from full stores: turns a state of charge into hours [h]. */
-  readonly full_hours: number;
-  /** Rejected at the recording's end: counted as out of use. */
-  readonly rejected: readonly RejectedSensor[];
-  readonly stores: readonly StoreWorth[];
-}
 
 /** Below this rise of sigma a thermocouple is hardly missed. */
 const HARDLY = 0.01;
@@ -34,29 +16,36 @@ const DOING = { charge: 'charging', discharge: 'discharging', stand: 'standing' 
  * The answer as maintenance reads it.
  * @param all lists every thermocouple, also those that are hardly missed
  */
-export function sensorsText(answer: SensorsAnswer, all: boolean): string {
+export function sensorsText(answer: UnitWorth, all: boolean): string {
   const stores = answer.stores.map((store) => storeText(store, answer, all));
   return [head(answer), ...stores].join('\n\n');
 }
 
-function head({ unit, over }: SensorsAnswer): string {
-  const along =
-    over.kind === 'recording'
-      ? `the second half of ${over.recording} (${over.covered_h.toFixed(1)} h)`
-      : `a settled day: ${over.charge_h.toFixed(1)} h charging, ${over.discharge_h.toFixed(1)} h discharging at rated power, ${over.stand_h.toFixed(1)} h standing`;
+function head({ unit, over }: UnitWorth): string {
   return [
     `${unit}: what its thermocouples are worth, over`,
-    along,
+    along(over),
     'Sigma, or +/-, is one standard deviation of the estimate, rms over that time. A loss is counted once',
     'what was known before it has left the bed: at first it costs less.',
   ].join('\n');
+}
+
+function along(over: WorthOver): string {
+  switch (over.kind) {
+    case 'recording':
+      return `the second half of ${over.recording} (${over.covered_h.toFixed(1)} h)`;
+    case 'now':
+      return `the next ${over.hours.toFixed(1)} h, ${DOING[over.mode]}`;
+    case 'day':
+      return `a settled day: ${over.charge_h.toFixed(1)} h charging, ${over.discharge_h.toFixed(1)} h discharging at rated power, ${over.stand_h.toFixed(1)} h standing`;
+  }
 }
 
 const percent = (share: number, digits = 2): string => (share * 100).toFixed(digits);
 const centimetres = (m: number | null): string => (m === null ? '-' : (m * 100).toFixed(1));
 const signed = (share: number): string => `${share > 0 ? '+' : ''}${percent(share, 1)}`;
 
-function storeText(store: StoreWorth, answer: SensorsAnswer, all: boolean): string {
+function storeText(store: StoreWorth, answer: UnitWorth, all: boolean): string {
   const inUse = store.sensors.filter((s) => s.in_use);
   const out = store.sensors.filter((s) => !s.in_use);
   const title = `Store ${store.store}`;

@@ -106,6 +106,27 @@ export function settledCycle(
   return last!;
 }
 
+/**
+ * One charge at the greatest power or discharge at rated power, from beds as they are, to the rule
+ * that ends it; `cells` follows from the beds.
+ *
+ * @param start enthalpy of each store's cells [J/m3 of bed], in the order of the unit's stores
+ */
+export function halfCycle(
+  unit: UnitDefinition,
+  machine: Machine,
+  direction: Direction,
+  start: readonly Float64Array[],
+  options: Pick<CycleOptions, 'step_s' | 'each'> = {},
+): HalfCycle {
+  const { step_s = 60, each = null } = options;
+  const beds = unit.stores.map((store, s): Bed => {
+    const enthalpy = Float64Array.from(start[s] as Float64Array);
+    return { ...startBed(store, enthalpy.length), enthalpy };
+  });
+  return run({ unit, machine, beds, step_s, stand_step_s: step_s, each }, direction);
+}
+
 function startBed(store: StoreDefinition, cells: number): Bed {
   const tables = buildBedTables(store.bed, store.reference_cold_K, store.reference_hot_K);
   const discharged = store.kind === 'hot' ? store.reference_cold_K : store.reference_hot_K;

@@ -3,6 +3,7 @@ import { type CycleStep, type SettledCycle, settledCycle } from '../cycle/settle
 import type { Mode } from '../definitions.js';
 import type { Conditions } from '../track/conditions.js';
 import { driveOf } from '../track/drive.js';
+import type { StoreState } from '../track/storeTracker.js';
 import type { TubeDrive, TubeState } from '../track/tube.js';
 import type { UnitModel } from '../unitModel.js';
 
@@ -25,17 +26,18 @@ export interface CourseStep {
  * `loss_at`; from `weigh_from` on sigmas are counted.
  */
 export interface Course {
-  readonly source: 'cycle' | 'recording';
   readonly steps: readonly CourseStep[];
   readonly loss_at: number;
   readonly weigh_from: number;
   /** Enthalpy at the start, by store and tube [J/m3 of bed]. */
   readonly start: readonly (readonly Float64Array[])[];
+  /** States of the stores to start from with all that is known; without them nothing is known yet. */
+  readonly states?: readonly StoreState[];
 }
 
 /** Longest steps of a course [s], and how often readings are taken in: covariances change over hours. */
 const FLOWING_STEP_S = 300;
-const STANDING_STEP_S = 900;
+export const STANDING_STEP_S = 900;
 const READ_EVERY_S = 300;
 const HOUR_S = 3600;
 const DAY_H = 24;
@@ -73,7 +75,6 @@ export function cycleCourse(model: UnitModel): { course: Course; cycle: SettledC
   });
   const cycles = BEFORE_CYCLES + SETTLING_CYCLES + 1;
   const course: Course = {
-    source: 'cycle',
     steps: Array.from({ length: cycles }, () => readSeldom(steps)).flat(),
     loss_at: BEFORE_CYCLES * steps.length,
     weigh_from: (BEFORE_CYCLES + SETTLING_CYCLES) * steps.length,
@@ -83,7 +84,7 @@ export function cycleCourse(model: UnitModel): { course: Course; cycle: SettledC
 }
 
 /** Takes readings in no more often than `READ_EVERY_S`, and at the end of each phase. */
-function readSeldom(steps: readonly CourseStep[]): CourseStep[] {
+export function readSeldom(steps: readonly CourseStep[]): CourseStep[] {
   let waiting_s = 0;
   let scans = 0;
   return steps.map((step, n): CourseStep => {
@@ -101,7 +102,7 @@ function readSeldom(steps: readonly CourseStep[]): CourseStep[] {
  * As many of the pieces that the bed's model takes at the greatest flow as fit in the longest step:
  * a step a little longer than its last whole piece would cost one more.
  */
-function flowingStep_s({ unit, machine, stores }: UnitModel): number {
+export function flowingStep_s({ unit, machine, stores }: UnitModel): number {
   let most = 0;
   settledCycle(unit, machine, {
     each: ({ flow_kg_s }) => {
@@ -129,7 +130,11 @@ function flowingStep_s({ unit, machine, stores }: UnitModel): number {
 }
 
 /** Through `driveOf`, so that an inlet without a sensor is as uncertain as when tracking. */
-function courseStep(model: UnitModel, step: CycleStep): CourseStep {
+export function courseStep(
+  model: UnitModel,
+  step: Omit<CycleStep, 'enthalpy'>,
+  ambient_K = model.unit.ambient_K,
+): CourseStep {
   const { unit, map } = model;
   const values = new Float64Array(unit.channels.length).fill(Number.NaN);
   const end = step.mode === 'discharge' ? 'discharge_inlet' : 'charge_inlet';
@@ -143,7 +148,7 @@ function courseStep(model: UnitModel, step: CycleStep): CourseStep {
     flowKnown: true,
     flowStandIn: false,
     power_W: Number.NaN,
-    ambient_K: unit.ambient_K,
+    ambient_K,
   };
   const scan = { time_ms: 0, values, held: new Uint8Array(values.length) };
   const outlets = { charge: step.outlets, discharge: step.outlets };

@@ -148,7 +148,6 @@ export function courseOf(
   );
   return {
     course: {
-      source: 'recording',
       steps,
       loss_at: after(0.25),
       weigh_from: Math.min(after(0.5), steps.length - 1),

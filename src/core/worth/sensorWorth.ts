@@ -99,18 +99,12 @@ export function* weighSensors(
   if (!(loss_at <= weigh_from && weigh_from < steps.length)) {
     throw new RangeError(`weigh_from = ${weigh_from}: expected ${loss_at} to ${steps.length - 1}`);
   }
-  const state = startStore(store);
-  state.started = true;
+  const known = course.states?.[s];
+  const state = known === undefined ? freshState(store, start) : structuredClone(known);
   const base = store.tubes.map((tube, k): WeighedTube => {
     const own = state.tubes[k] as WeighedTube['state'];
-    own.enthalpy.set(start[k] as Float64Array);
     return weighedTube(tube, (id) => !options.out_of_use.has(id), own);
   });
-  if (store.wall !== null && state.wall !== null) {
-    const beside = state.tubes[store.wall.tube] as WeighedTube['state'];
-    resetWall(store.tables, state.wall, beside);
-  }
-  followOrigin(store, state, true);
   let variants: Variants | null = null;
   const total = workOf(store, course, options);
   let done = 0;
@@ -142,6 +136,21 @@ export function* weighSensors(
     yield done / total;
   }
   return answerOf(store, variants as Variants, options);
+}
+
+/** A store that knows nothing but stands where the course begins. */
+function freshState(store: StoreModel, start: readonly Float64Array[]): StoreState {
+  const state = startStore(store);
+  state.started = true;
+  state.tubes.forEach((tube, k) => {
+    tube.enthalpy.set(start[k] as Float64Array);
+  });
+  if (store.wall !== null && state.wall !== null) {
+    const beside = state.tubes[store.wall.tube] as WeighedTube['state'];
+    resetWall(store.tables, state.wall, beside);
+  }
+  followOrigin(store, state, true);
+  return state;
 }
 
 /** The mean of the tubes: as recorded, else the model's own, with the zone at the wall. */

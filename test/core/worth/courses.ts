@@ -30,7 +30,7 @@ export function courseThrough(
     const mode = flux > 0 ? 'charge' : flux < 0 ? 'discharge' : 'stand';
     return { mode, drives: [drive], scans: 1 };
   });
-  return { source: 'recording', steps, loss_at, weigh_from, start: [start] };
+  return { steps, loss_at, weigh_from, start: [start] };
 }
 
 export function weighed(
