@@ -1,21 +1,48 @@
 import { parentPort, workerData } from 'node:worker_threads';
 import { loadSite } from './config/load.js';
+import type { UnitDefinition } from './core/definitions.js';
 import { hoursAt, restoreUnit, type UnitSnapshot } from './core/unit.js';
+import { type UnitWorth, unitWorth } from './core/worth/unitWorth.js';
 import { reasonOf } from './errors.js';
 
-/** A question to the worker: hours at some powers from a saved state. */
-export interface HoursQuestion {
+/** A question to a worker: hours at some powers, or what thermocouples are worth. */
+export type WorkerQuestion =
+  | {
+      readonly kind: 'hours';
+      readonly unit: string;
+      readonly snapshot: UnitSnapshot;
+      readonly powers_W: readonly number[];
+    }
+  | {
+      readonly kind: 'sensors';
+      readonly unit: string;
+      /** For the hours ahead of this state; null = over a settled day. */
+      readonly snapshot: UnitSnapshot | null;
+    };
+
+export interface NumberedQuestion {
   readonly id: number;
-  readonly unit: string;
-  readonly snapshot: UnitSnapshot;
-  readonly powers_W: readonly number[];
+  readonly question: WorkerQuestion;
 }
 
-/** `answers` as of `hoursAt`, or the words of what went wrong. */
-export interface HoursReply {
+export type Answer = ReturnType<typeof hoursAt> | UnitWorth | null;
+
+/** What was answered, or the words of what went wrong. */
+export interface WorkerReply {
   readonly id: number;
-  readonly answers?: ReturnType<typeof hoursAt>;
+  readonly answer?: Answer;
   readonly failure?: string;
+}
+
+function answerTo(unit: UnitDefinition, question: WorkerQuestion): Answer {
+  if (question.kind === 'hours') {
+    return hoursAt(unit, restoreUnit(unit, question.snapshot), question.powers_W);
+  }
+  const { snapshot } = question;
+  const run = unitWorth(unit, snapshot === null ? null : restoreUnit(unit, snapshot));
+  let next = run.next();
+  while (!next.done) next = run.next();
+  return next.value;
 }
 
 /**
@@ -25,12 +52,14 @@ export interface HoursReply {
 function serve(port: NonNullable<typeof parentPort>): void {
   const { configPath } = workerData as { configPath: string };
   const units = new Map(loadSite(configPath).units.map((unit) => [unit.id, unit]));
-  port.on('message', ({ id, unit, snapshot, powers_W }: HoursQuestion) => {
-    let reply: HoursReply;
+  port.on('message', ({ id, question }: NumberedQuestion) => {
+    let reply: WorkerReply;
     try {
-      const definition = units.get(unit);
-      if (!definition) throw new RangeError(`unit must be one of the configuration, got ${unit}`);
-      reply = { id, answers: hoursAt(definition, restoreUnit(definition, snapshot), powers_W) };
+      const unit = units.get(question.unit);
+      if (!unit) {
+        throw new RangeError(`unit must be one of the configuration, got ${question.unit}`);
+      }
+      reply = { id, answer: answerTo(unit, question) };
     } catch (thrown) {
       reply = { id, failure: reasonOf(thrown) };
     }

@@ -13,6 +13,7 @@ import {
   type UnitState,
   type UnitStep,
 } from '../core/unit.js';
+import { type UnitWorth, unitWorth } from '../core/worth/unitWorth.js';
 
 /** What the daemon needs of the core; a test may put something small in its place. */
 export interface Core {
@@ -21,7 +22,16 @@ export interface Core {
   saveUnit(state: UnitState): UnitSnapshot;
   restoreUnit(unit: UnitDefinition, snapshot: UnitSnapshot): UnitState;
   hoursAt(unit: UnitDefinition, state: UnitState, powers_W: readonly number[]): DispatchAnswer[];
+  unitWorth(unit: UnitDefinition, state: UnitState | null): Generator<number, UnitWorth | null>;
   hoursDue(unit: UnitDefinition, last_ms: number | null, now_ms: number): boolean;
 }
 
-export const realCore: Core = { startUnit, advance, saveUnit, restoreUnit, hoursAt, hoursDue };
+export const realCore: Core = {
+  startUnit,
+  advance,
+  saveUnit,
+  restoreUnit,
+  hoursAt,
+  unitWorth,
+  hoursDue,
+};

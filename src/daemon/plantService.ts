@@ -9,6 +9,7 @@ import type {
 } from '../adapters/http/service.js';
 import type { DispatchAnswer } from '../core/estimate.js';
 import type { WatchEvent } from '../core/watch/event.js';
+import type { UnitWorth } from '../core/worth/unitWorth.js';
 import type { DaemonClock } from './clock.js';
 import type { Counters } from './counters.js';
 import type { Questions } from './questions.js';
@@ -68,6 +69,12 @@ export class DaemonService implements PlantService {
     const snapshot = runner.snapshot();
     const powers_W = powers_MW.map((power) => power * 1e6);
     return { time, answers: await this.parts.questions.hours(runner.unit, snapshot, powers_W) };
+  }
+
+  async sensors(id: string, over: 'now' | 'day'): Promise<UnitWorth | null> {
+    const runner = this.runner(id);
+    this.parts.counters.add('questions');
+    return this.parts.questions.sensors(runner.unit, over === 'day' ? null : runner.snapshot());
   }
 
   history(unit: string, from_ms: number, to_ms: number, points: number): HistoryPoint[] {

@@ -1,98 +1,85 @@
-import { Worker } from 'node:worker_threads';
+import { setImmediate } from 'node:timers/promises';
 import type { UnitDefinition } from '../core/definitions.js';
 import type { DispatchAnswer } from '../core/estimate.js';
 import type { UnitSnapshot } from '../core/unit.js';
-import { RockhourError } from '../errors.js';
-import type { HoursQuestion, HoursReply } from '../worker.js';
+import type { UnitWorth } from '../core/worth/unitWorth.js';
 import type { Core } from './core.js';
+import { WorkerLine } from './workerLine.js';
 
-/** Questions that wait at most; more are refused at once rather than answered too late. */
-const MOST_WAITING = 64;
-
-interface Waiting {
-  readonly resolve: (answers: DispatchAnswer[]) => void;
-  readonly reject: (reason: unknown) => void;
-}
+/** In this thread a long answer is worked off in slices of so long [ms]. */
+const SLICE_MS = 25;
 
 /**
- * Questions to a worker thread, which is started with the first of them and again should it end.
- * Without a configuration file (a site made in code) they are answered in this thread.
+ * Questions that take long, answered by worker threads: one for hours, one for what thermocouples are
+ * worth, so that seconds never wait for half a minute. Without a configuration file (a site made in
+ * code) they are answered in this thread.
  */
 export class Questions {
-  private worker: Worker | null = null;
-  private readonly waiting = new Map<number, Waiting>();
-  private next = 1;
+  private readonly quick: WorkerLine | null;
+  private readonly slow: WorkerLine | null;
+  /** Answers on their way, and those over a day for good: they follow from the configuration. */
+  private readonly worths = new Map<string, Promise<UnitWorth | null>>();
 
   constructor(
     private readonly core: Core,
-    private readonly configPath: string | null,
-  ) {}
+    configPath: string | null,
+  ) {
+    this.quick = configPath === null ? null : new WorkerLine(configPath);
+    this.slow = configPath === null ? null : new WorkerLine(configPath);
+  }
 
   async hours(
     unit: UnitDefinition,
     snapshot: UnitSnapshot,
     powers_W: readonly number[],
   ): Promise<DispatchAnswer[]> {
-    if (this.configPath === null) {
-      await new Promise((resolve) => setImmediate(resolve));
+    if (this.quick === null) {
+      await setImmediate();
       return this.core.hoursAt(unit, this.core.restoreUnit(unit, snapshot), powers_W);
     }
-    if (this.waiting.size >= MOST_WAITING) {
-      throw new RockhourError('INTERNAL', `${MOST_WAITING} questions wait for an answer already`, {
-        advice: 'Ask again in a moment.',
-      });
-    }
-    const id = this.next++;
-    const worker = this.start(this.configPath);
-    return new Promise((resolve, reject) => {
-      this.waiting.set(id, { resolve, reject });
-      worker.postMessage({ id, unit: unit.id, snapshot, powers_W } satisfies HoursQuestion);
-    });
+    const question = { kind: 'hours', unit: unit.id, snapshot, powers_W } as const;
+    return (await this.quick.ask(question)) as DispatchAnswer[];
+  }
+
+  /**
+   * What thermocouples are worth over the hours ahead of a state, or over a settled day (null). Who
+   * asks while the same is being answered gets that answer.
+   * @returns null before every store has started
+   */
+  sensors(unit: UnitDefinition, snapshot: UnitSnapshot | null): Promise<UnitWorth | null> {
+    const key = `${unit.id} ${snapshot === null ? 'day' : 'now'}`;
+    const known = this.worths.get(key);
+    if (known) return known;
+    const answer = this.weigh(unit, snapshot);
+    this.worths.set(key, answer);
+    const forget = () => this.worths.delete(key);
+    answer.then(snapshot === null ? () => undefined : forget, forget);
+    return answer;
   }
 
   async stop(): Promise<void> {
-    const { worker } = this;
-    this.worker = null;
-    await worker?.terminate();
-    this.failAll(new Error('rockhour is stopping'));
+    await Promise.all([this.quick?.stop(), this.slow?.stop()]);
   }
 
-  private start(configPath: string): Worker {
-    if (this.worker) return this.worker;
-    const worker = startWorker({ configPath });
-    worker.on('message', (reply: HoursReply) => this.settle(reply));
-    worker.on('error', (error) => this.lost(worker, error));
-    worker.on('exit', (code) => this.lost(worker, new Error(`the worker ended with code ${code}`)));
-    worker.unref();
-    this.worker = worker;
-    return worker;
+  private async weigh(
+    unit: UnitDefinition,
+    snapshot: UnitSnapshot | null,
+  ): Promise<UnitWorth | null> {
+    if (this.slow !== null) {
+      return (await this.slow.ask({
+        kind: 'sensors',
+        unit: unit.id,
+        snapshot,
+      })) as UnitWorth | null;
+    }
+    const state = snapshot === null ? null : this.core.restoreUnit(unit, snapshot);
+    const run = this.core.unitWorth(unit, state);
+    let turned_ms = performance.now();
+    for (let next = run.next(); ; next = run.next()) {
+      if (next.done) return next.value;
+      if (performance.now() - turned_ms < SLICE_MS) continue;
+      await setImmediate();
+      turned_ms = performance.now();
+    }
   }
-
-  private settle({ id, answers, failure }: HoursReply): void {
-    const waiting = this.waiting.get(id);
-    this.waiting.delete(id);
-    if (answers) waiting?.resolve(answers);
-    else waiting?.reject(new Error(failure));
-  }
-
-  private lost(worker: Worker, reason: Error): void {
-    if (this.worker !== worker) return;
-    this.worker = null;
-    this.failAll(reason);
-  }
-
-  private failAll(reason: Error): void {
-    for (const { reject } of this.waiting.values()) reject(reason);
-    this.waiting.clear();
-  }
-}
-
-/** From the sources, as in development, the worker needs the loader for TypeScript first. */
-function startWorker(workerData: object): Worker {
-  if (!import.meta.url.endsWith('.ts')) {
-    return new Worker(new URL('../worker.js', import.meta.url), { workerData });
-  }
-  const { href } = new URL('../worker.ts', import.meta.url);
-  const load = `import('tsx/esm/api').then(({ register }) => { register(); return import('${href}'); })`;
-  return new Worker(load, { eval: true, workerData });
 }

@@ -158,6 +158,7 @@ describe.skipIf(!mosquitto)('a running daemon', () => {
       '/api/units/{unit}': [''],
       '/api/units/{unit}/profile': [''],
       '/api/units/{unit}/hours': ['?power_MW=1.8,1.2', '?power_MW=1'],
+      '/api/units/{unit}/sensors': [''],
       '/api/units/{unit}/history': ['', '?points=5', '?series=state_of_charge', '?format=csv'],
       '/api/alarms': ['', '?unit=vellmoor'],
       '/api/events': ['', '?unit=vellmoor&most=3'],
@@ -166,6 +167,7 @@ describe.skipIf(!mosquitto)('a running daemon', () => {
     const REFUSED = [
       ['/api/units/{unit}', '/api/units/nowhere', 404],
       ['/api/units/{unit}/hours', '/api/units/vellmoor/hours?power_MW=all', 400],
+      ['/api/units/{unit}/sensors', '/api/units/vellmoor/sensors?over=week', 400],
       ['/api/units/{unit}/history', '/api/units/vellmoor/history?from=noon', 400],
       ['/api/alarms', '/api/alarms?unit=nowhere', 400],
       ['/api/stream', '/api/stream?profile=nowhere', 400],

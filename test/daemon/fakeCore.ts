@@ -82,6 +82,15 @@ export const fakeCore: Core = {
   restoreUnit: (_unit, snapshot) => structuredClone(snapshot.state),
   hoursAt: (_unit, state, powers_W) =>
     powers_W.map((power_W) => answer(power_W, memory(state).mix)),
+  // biome-ignore lint/correctness/useYield: an answer that takes no time
+  *unitWorth(unit, state) {
+    const over = {
+      kind: 'now',
+      mode: 'stand',
+      hours: state === null ? 0 : memory(state).mix,
+    } as const;
+    return { unit: unit.id, over, full_hours: 6, rejected: [], stores: [] };
+  },
   hoursDue: (unit, last_ms, now_ms) =>
     last_ms === null ||
     Math.floor(now_ms / unit.hours_every_s / 1000) !==

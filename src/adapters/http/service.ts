@@ -1,6 +1,7 @@
 import type { UnitDefinition } from '../../core/definitions.js';
 import type { DispatchAnswer, Estimate, ProfileView } from '../../core/estimate.js';
 import type { WatchEvent } from '../../core/watch/event.js';
+import type { UnitWorth } from '../../core/worth/unitWorth.js';
 
 /** An alarm or alert that stands now, or has returned and is not yet acknowledged. */
 export interface StandingEvent extends Omit<WatchEvent, 'transition'> {
@@ -46,6 +47,11 @@ export interface PlantService {
     unit: string,
     powers_MW: readonly number[],
   ): Promise<{ time: string; answers: DispatchAnswer[] }>;
+  /**
+   * What thermocouples are worth over the hours ahead of the present state, or over a settled day.
+   * null before every store has started.
+   */
+  sensors(unit: string, over: 'now' | 'day'): Promise<UnitWorth | null>;
   /** At most `points` rows per call, thinned evenly on the server; series names as documented. */
   history(unit: string, from_ms: number, to_ms: number, points: number): HistoryPoint[];
   historySeries(unit: string): string[];

@@ -1,12 +1,14 @@
 import type { StoreDefinition, UnitDefinition } from '../../core/definitions.js';
 import type { Estimate, ProfileView } from '../../core/estimate.js';
 import { ZERO_CELSIUS_K } from '../../core/units.js';
+import type { UnitWorth } from '../../core/worth/unitWorth.js';
 import type {
   StreamStateView,
   UnitDefinitionView,
   UnitProfileView,
   UnitStateView,
 } from './schema/answers.js';
+import type { UnitWorthView } from './schema/worth.js';
 import type { UnitNow } from './service.js';
 
 /** From SI and kelvin to the units of the edge; the only place of this adapter that converts. */
@@ -130,4 +132,19 @@ export function profileView(profile: ProfileView): Omit<UnitProfileView, 'age_s'
 export function streamStateView(now: UnitNow, withProfile: boolean): StreamStateView {
   const profile = withProfile && now.profile !== null ? profileView(now.profile) : null;
   return { ...stateView(now), profile };
+}
+
+/** @param time of the state that hours ahead begin with; null over a day */
+export function worthView(worth: UnitWorth, time: string | null): UnitWorthView {
+  return {
+    ...worth,
+    time,
+    rejected: [...worth.rejected],
+    stores: worth.stores.map(({ sensors, groups, strings, ...store }) => ({
+      ...store,
+      sensors: [...sensors],
+      groups: groups.map((group) => ({ ...group, strings: [...group.strings] })),
+      strings: strings.map((string) => ({ ...string, one_more: [...string.one_more] })),
+    })),
+  };
 }

@@ -83,3 +83,22 @@ export function* weighUnit(
   }
   return { unit: unit.id, over, full_hours: model.fullHours, rejected, stores: found };
 }
+
+/** Places along each string at which one thermocouple more is tried over a day. */
+const DAY_PLACES = 10;
+
+/**
+ * What all thermocouples of a unit are worth: over the hours ahead of a state, or over a settled day
+ * (null), then with what one more would gain. A generator, as `weighUnit`.
+ *
+ * @returns null before every store has started
+ */
+export function* unitWorth(
+  unit: UnitDefinition,
+  state: UnitState | null,
+): Generator<number, UnitWorth | null> {
+  const weighing = state === null ? dayWeighing(unit) : presentWeighing(unit, state);
+  if (weighing === null) return null;
+  const stores = unit.stores.map((_, s) => s);
+  return yield* weighUnit(unit, weighing, stores, state === null ? DAY_PLACES : 0);
+}

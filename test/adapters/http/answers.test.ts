@@ -11,6 +11,7 @@ import {
   unitNowSchema,
   unitProfileSchema,
 } from '../../../src/adapters/http/schema/answers.js';
+import { unitWorthSchema } from '../../../src/adapters/http/schema/worth.js';
 import { testApp } from './httpApp.js';
 
 type Built = Awaited<ReturnType<typeof testApp>>;
@@ -129,6 +130,18 @@ describe('the good answers, each held against the schema that documents it', () 
     expect(hours.answers).toEqual((await plant.hours('north', [1.2, 1.8])).answers);
   });
 
+  it('answers what thermocouples are worth, for the hours ahead unless a day is asked for', async () => {
+    const { get, plant } = await app();
+    const ask = async (query: string) =>
+      unitWorthSchema.strict().parse((await get(`/api/units/north/sensors${query}`)).json());
+    const now = await ask('');
+    expect(now).toEqual(await ask('?over=now'));
+    expect(now).toEqual({ ...(await plant.sensors('north', 'now')), time: plant.time() });
+    const day = await ask('?over=day');
+    expect(day).toMatchObject({ time: null, over: { kind: 'day', stand_h: 11 } });
+    expect(day.stores[0]!.strings[0]!.one_more).toHaveLength(1);
+  });
+
   it('gives the history of the 24 h before the newest estimate unless asked otherwise', async () => {
     const { get, plant } = await app();
     const history = unitHistorySchema
@@ -233,6 +246,7 @@ describe('the good answers, each held against the schema that documents it', () 
       '/api/units/{unit}/history',
       '/api/units/{unit}/hours',
       '/api/units/{unit}/profile',
+      '/api/units/{unit}/sensors',
       '/metrics',
     ]);
     const hours = document.paths['/api/units/{unit}/hours'].get;

@@ -22,6 +22,7 @@ describe('a wrong question', () => {
   const history = '/api/units/north/history';
 
   it.each([
+    ['/api/units/north/sensors?over=week', 'over', 'week', 'now or day'],
     [hours, 'power_MW', null, POWERS],
     [`${hours}?power_MW=`, 'power_MW', '', POWERS],
     [`${hours}?power_MW=two`, 'power_MW', 'two', POWERS],
@@ -82,7 +83,7 @@ describe('a wrong question', () => {
     expect(error.expected).toBe('a time before "to", which is 2026-01-31T04:00:00.000Z');
   });
 
-  it.each(['', '/profile', '/hours?power_MW=1', '/history'])(
+  it.each(['', '/profile', '/hours?power_MW=1', '/sensors', '/history'])(
     'about an unknown unit%s says which there are',
     async (rest) => {
       const { get } = await app();
@@ -177,8 +178,8 @@ describe('a question that cannot be answered now', () => {
   it('before the first scan says that there is no estimate yet', async () => {
     const { get, plant, logged } = await app();
     plant.started = false;
-    for (const url of ['/api/units/north/hours?power_MW=1', '/api/units/north/profile']) {
-      const answer = await get(url);
+    for (const path of ['hours?power_MW=1', 'profile', 'sensors']) {
+      const answer = await get(`/api/units/north/${path}`);
       expect(answer.statusCode).toBe(503);
       expect(answer.json().error).toMatchObject({ code: 'no_estimate_yet', value: 'north' });
     }
@@ -193,6 +194,22 @@ describe('a question that cannot be answered now', () => {
     expect(answer.json().error).toMatchObject({ code: 'question_failed', field: 'power_MW' });
     expect(answer.json().error.message).toContain('the worker has ended');
     expect(logged.join()).toContain('the worker has ended');
+    const worth = await get('/api/units/north/sensors?over=day');
+    expect(worth.statusCode).toBe(503);
+    expect(worth.json().error).toMatchObject({
+      code: 'question_failed',
+      field: 'over',
+      value: 'day',
+    });
+    expect(worth.json().error.message).toContain('the worker has ended');
+  });
+
+  it('because no store has had readings says so', async () => {
+    const { get, plant } = await app();
+    plant.started = false;
+    const worth = await get('/api/units/north/sensors?over=day');
+    expect(worth.statusCode).toBe(503);
+    expect(worth.json().error.message).toContain('not every store has had readings yet');
   });
 
   it('because of a fault of the daemon tells the client no more than where to look', async () => {

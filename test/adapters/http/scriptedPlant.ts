@@ -6,7 +6,7 @@ import type {
   StandingEvent,
   UnitNow,
 } from '../../../src/adapters/http/service.js';
-import type { UnitDefinition } from '../../../src/core/definitions.js';
+import type { Mode, UnitDefinition } from '../../../src/core/definitions.js';
 import type {
   DispatchAnswer,
   Estimate,
@@ -14,6 +14,7 @@ import type {
   StoreEstimate,
 } from '../../../src/core/estimate.js';
 import type { WatchEvent } from '../../../src/core/watch/event.js';
+import type { UnitWorth } from '../../../src/core/worth/unitWorth.js';
 import { COLD, HOT, unitOf } from './scriptedDefinitions.js';
 
 const START_MS = Date.UTC(2026, 0, 31, 6);
@@ -30,6 +31,44 @@ function erf(x: number): number {
 interface Moment {
   charged: number;
   mode: 'charge' | 'discharge' | 'stand';
+}
+
+/** Worths that only have the right shape: the further from the middle, the more precious. */
+function worthOf(unit: UnitDefinition, over: 'now' | 'day', mode: Mode): UnitWorth {
+  const spread = (factor: number) => ({
+    soc_sigma_rms: 0.002 * factor,
+    soc_sigma_worst: 0.003 * factor,
+    position_sigma_rms_m: 0.02 * factor,
+    position_sigma_worst_m: null,
+  });
+  const changed = (rise: number) => ({
+    ...{ store: spread(1 + rise), string: spread(1 + 2 * rise) },
+    ...{ rise, most_in: rise > 0 ? ('charge' as const) : null },
+  });
+  return {
+    unit: unit.id,
+    over:
+      over === 'day'
+        ? { kind: 'day', charge_h: 7, discharge_h: 6, stand_h: 11 }
+        : { kind: 'now', mode, hours: 5 },
+    full_hours: 6,
+    rejected: [],
+    stores: unit.stores.map((store) => ({
+      store: store.id,
+      all: spread(1),
+      sensors: store.strings.flatMap((string) =>
+        string.thermocouples.map(({ id, position_m, group }) => ({
+          ...{ id, string_id: string.id, position_m, group, in_use: true },
+          ...changed(0.01 * Math.abs(position_m / store.bed.length_m - 0.5)),
+        })),
+      ),
+      groups: [],
+      strings: store.strings.map(({ id, radius_m, thermocouples }) => ({
+        ...{ id, radius_m, thermocouples: thermocouples.length, all: spread(0.7), ...changed(1) },
+        one_more: over === 'day' ? [{ position_m: 1, ...changed(-0.01) }] : [],
+      })),
+    })),
+  };
 }
 
 /**
@@ -155,6 +194,12 @@ export class ScriptedPlant implements PlantService {
     if (this.failHours !== null) throw this.failHours;
     if (this.now(unit) === undefined) throw new RangeError(`unit: ${unit}`);
     return { time: this.time(), answers: powers_MW.map((power) => this.answer(power)) };
+  }
+
+  async sensors(unit: string, over: 'now' | 'day'): Promise<UnitWorth | null> {
+    if (this.failHours !== null) throw this.failHours;
+    if (!this.started) return null;
+    return worthOf(this.now(unit)!.unit, over, this.moment.mode);
   }
 
   /** theta along a string: the front stands at `charged` of the length. */

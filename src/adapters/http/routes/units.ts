@@ -6,9 +6,10 @@ import {
   unitNowSchema,
   unitProfileSchema,
 } from '../schema/answers.js';
-import { hoursQuery, unitParams } from '../schema/questions.js';
+import { hoursQuery, sensorsQuery, unitParams } from '../schema/questions.js';
+import { unitWorthSchema } from '../schema/worth.js';
 import type { PlantService, UnitNow } from '../service.js';
-import { ageOf, definitionView, profileView, stateView } from '../views.js';
+import { ageOf, definitionView, profileView, stateView, worthView } from '../views.js';
 
 function noEstimate(unit: string): HttpFault {
   return new HttpFault(
@@ -37,7 +38,30 @@ async function askHours(service: PlantService, now: UnitNow, powers: readonly nu
   }
 }
 
-/** GET /api/units, /api/units/{unit}, .../profile, .../hours */
+async function askSensors(service: PlantService, now: UnitNow, over: 'now' | 'day') {
+  const unit = now.unit.id;
+  const failed = (why: string, cause?: unknown): HttpFault => {
+    const fault = new HttpFault(
+      503,
+      'question_failed',
+      `what the thermocouples of unit ${unit} are worth could not be computed: ${why}`,
+      { field: 'over', value: over },
+    );
+    if (cause !== undefined) fault.cause = cause;
+    return fault;
+  };
+  const time = over === 'now' ? (now.estimate?.time ?? null) : null;
+  let worth: Awaited<ReturnType<PlantService['sensors']>>;
+  try {
+    worth = await service.sensors(unit, over);
+  } catch (cause) {
+    throw failed(cause instanceof Error ? cause.message : String(cause), cause);
+  }
+  if (worth === null) throw failed('not every store has had readings yet');
+  return worthView(worth, time);
+}
+
+/** GET /api/units, /api/units/{unit}, .../profile, .../hours, .../sensors */
 export const unitRoutes: Routes = (app, { service, tuning }) => {
   const tags = ['units'];
 
@@ -127,6 +151,32 @@ export const unitRoutes: Routes = (app, { service, tuning }) => {
       const now = unitOf(service, request.params.unit);
       if (now.estimate === null) throw noEstimate(now.unit.id);
       return askHours(service, now, request.query.power_MW);
+    },
+  );
+
+  app.get(
+    '/api/units/:unit/sensors',
+    {
+      config: { rateLimit: { max: tuning.hours_per_min, timeWindow: 60_000 } },
+      schema: {
+        operationId: 'sensors',
+        summary: 'What losing each thermocouple would do to sigma, and where one more would help',
+        tags,
+        params: unitParams,
+        querystring: sensorsQuery,
+        response: {
+          200: unitWorthSchema.describe(
+            'Takes seconds for the hours ahead, up to a minute for a day',
+          ),
+          ...faults,
+        },
+      },
+    },
+    async (request) => {
+      const now = unitOf(service, request.params.unit);
+      const over = request.query.over ?? 'now';
+      if (over === 'now' && now.estimate === null) throw noEstimate(now.unit.id);
+      return askSensors(service, now, over);
     },
   );
 };

@@ -48,7 +48,7 @@ const frontViewSchema = z.object({
   disagreement: numberOrNull.describe('(front view - tube) over the sigma of the difference'),
 });
 
-const rejectedSchema = z.object({
+export const rejectedSchema = z.object({
   id: z.string(),
   verdict: z.enum(SENSOR_VERDICTS),
   since: timeSchema,

@@ -35,6 +35,15 @@ export const hoursQuery = z.strictObject({
     }),
 });
 
+const OVER = 'now or day';
+
+export const sensorsQuery = z.strictObject({
+  over: z
+    .enum(['now', 'day'], { error: OVER })
+    .describe('The hours ahead of the present state (default), or a settled day')
+    .optional(),
+});
+
 const INSTANT = 'a time in ISO 8601 with offset, as in 2026-01-31T06:00:00Z';
 const instant = z.iso
   .datetime({ offset: true, error: INSTANT })
