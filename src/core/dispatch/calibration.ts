@@ -1,6 +1,7 @@
 import type { Direction } from '../definitions.js';
 import { meanFactor } from '../track/storeEstimate.js';
 import type { StoreModel, StoreState } from '../track/storeTracker.js';
+import { streamsOf } from '../track/streams.js';
 import type { UnitModel } from '../unitModel.js';
 import type { UnitState } from '../unitState.js';
 import { type Gaussian, independent, observe, transformed } from './gaussian.js';
@@ -106,12 +107,20 @@ export function calibrate(model: UnitModel, state: UnitState, load: number): Cal
   };
 }
 
+/**
+ * Area-mean flow factor of a store, the layers at the wall with it: all the gas that was metered
+ * passes through the whole cross-section.
+ */
+export function meanFlowFactor(model: StoreModel, state: StoreState): number {
+  return streamsOf(model, state).reduce((sum, s) => sum + s.share * s.flowFactor, 0);
+}
+
 /** ln of a store's mean flow factor, with what the strings' places leave open. */
 function meanFlow(store: StoreModel, state: StoreState): { log: number; variance: number } {
   const { value, sigma } = meanFactor(store, state, 'flow');
   const squares = store.tubes.reduce((sum, tube) => sum + tube.string.area_share ** 2, 0);
   return {
-    log: Math.log(value),
+    log: Math.log(meanFlowFactor(store, state)),
     variance: (sigma / value) ** 2 + STRING_FLOW_SIGMA ** 2 * squares,
   };
 }

@@ -1,9 +1,10 @@
 import { type BedWork, createBedWork } from '../bed/kernel.js';
 import { enthalpyAt, temperatureAt } from '../bed/tables.js';
-import { cellCentres, meanFactor } from '../track/storeEstimate.js';
+import { cellCentres } from '../track/storeEstimate.js';
 import type { StoreModel, StoreState } from '../track/storeTracker.js';
 import { streamsOf } from '../track/streams.js';
 import type { TubeModel } from '../track/tube.js';
+import { meanFlowFactor } from './calibration.js';
 import type { HoursInput } from './hours.js';
 import { machineSpread, partLoadFactor } from './machineSpread.js';
 import { refined } from './refine.js';
@@ -88,7 +89,7 @@ function rolloutStore(
   plenum_K: number,
   logFlow: number | null,
 ): RolloutStore {
-  const own = logFlow === null ? 1 : Math.exp(logFlow) / meanFactor(model, state, 'flow').value;
+  const own = logFlow === null ? 1 : Math.exp(logFlow) / meanFlowFactor(model, state);
   return {
     store: model.store,
     tables: model.tables,
