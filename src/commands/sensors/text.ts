@@ -9,7 +9,8 @@ const HARDLY = 0.01;
 /** So many are listed even where none is missed much. */
 const LISTED = 5;
 const WIDTH = 100;
-const SIGMA = ['change of sigma %', 'state of charge +/- %', 'worst +/- %'];
+/** Change of the store's sigma, and that sigma with the change. */
+const SIGMA = ['sigma %', 'charge +/-%', 'worst +/-%'];
 const DOING = { charge: 'charging', discharge: 'discharging', stand: 'standing' } as const;
 
 /**
@@ -25,8 +26,9 @@ function head({ unit, over }: UnitWorth): string {
   return [
     `${unit}: what its thermocouples are worth, over`,
     along(over),
-    'Sigma, or +/-, is one standard deviation of the estimate, rms over that time. A loss is counted once',
-    'what was known before it has left the bed: at first it costs less.',
+    '+/- is sigma, one standard deviation of the estimate, rms over that time; sigma % is by how much that',
+    "of the store's state of charge (charge) would change. A loss is counted once what was known before",
+    'it has left the bed: at first it costs less.',
   ].join('\n');
 }
 
@@ -65,7 +67,7 @@ function now(store: StoreWorth, inUse: number, full_hours: number): string {
     store.all;
   const count = store.strings.length;
   return table(
-    [`sigma with all ${inUse} on ${count} ${count === 1 ? 'string' : 'strings'}`, 'rms', 'worst'],
+    [`+/- with all ${inUse} on ${count} ${count === 1 ? 'string' : 'strings'}`, 'rms', 'worst'],
     [
       ['state of charge %', percent(soc_sigma_rms), percent(soc_sigma_worst)],
       ['front position cm', centimetres(position_sigma_rms_m), centimetres(position_sigma_worst_m)],
@@ -97,10 +99,10 @@ function losses(store: StoreWorth, inUse: readonly SensorWorth[], all: boolean):
   const share = percent(HARDLY, 0);
   const lines = [
     missed === 0
-      ? `Any one thermocouple can be lost: sigma of the state of charge rises by less than ${share} % of itself.`
-      : `Losing one of ${missed} raises sigma of the state of charge by ${share} % of itself or more.`,
+      ? `Any one of them can be lost: sigma rises by less than ${share} % of itself.`
+      : `${missed} would be missed: without ${missed === 1 ? 'it' : 'any one of them'} sigma rises by ${share} % of itself or more.`,
     'The most precious first:',
-    table([...header, 'its string: front +/- cm', 'felt most while'], rows),
+    table([...header, "string's front +/-cm", 'felt most'], rows),
   ];
   const [most] = rest;
   if (most !== undefined) {
@@ -148,7 +150,7 @@ function wholes(store: StoreWorth, full_hours: number): string {
   const strings = store.strings
     .filter(({ id }) => !covered.has(id))
     .map((string) => row(`string ${string.id}: ${string.thermocouples}`, string));
-  const header = ['all of these lost', ...SIGMA, 'front +/- cm', 'hours +/-'];
+  const header = ['all of these lost', ...SIGMA, 'front +/-cm', 'hours +/-'];
   return table(header, [...groups, ...strings]);
 }
 
@@ -169,12 +171,12 @@ function oneMore(store: StoreWorth): string {
     position_m.toFixed(2),
     ...store.strings.map((string) => signed(string.one_more[i]?.rise ?? 0)),
   ]);
-  const header = ['best on', 'x m', ...SIGMA.slice(0, 2), 'that string: front +/- cm'];
+  const header = ['best on', 'x m', ...SIGMA.slice(0, 2), "string's front +/-cm"];
   return [
     'One thermocouple more, on a card of its own:',
     table(header, best),
     '',
-    'Change of sigma % by its place and string:',
+    'sigma % by its place and string:',
     table(['x m', ...store.strings.map((s) => s.id)], rows),
   ].join('\n');
 }
