@@ -79,7 +79,8 @@ function nothingBefore(
   });
 }
 
-async function onlyUnitOf(url: string): Promise<string> {
+/** The only unit of a running daemon; with several one has to be named. */
+export async function onlyUnitOf(url: string): Promise<string> {
   const { units } = (await askDaemon(url, '/api/units')) as { units: { unit: string }[] };
   if (units.length === 1 && units[0] !== undefined) return units[0].unit;
   throw new RockhourError(

@@ -4,6 +4,8 @@ import type { UnitDefinition } from '../core/definitions.js';
 import { courseOf, LEAST_COURSE_S, recordCourse, takeScan } from '../core/worth/recordedCourse.js';
 import { dayWeighing, type UnitWorth, type Weighing, weighUnit } from '../core/worth/unitWorth.js';
 import { RockhourError } from '../errors.js';
+import { askDaemon } from './daemonAnswer.js';
+import { onlyUnitOf } from './hours.js';
 import { Interrupt } from './interrupt.js';
 import { startProgress } from './progress.js';
 import { sensorsText } from './sensors/text.js';
@@ -11,11 +13,12 @@ import { loadUnit } from './site.js';
 import { tellCounts, walkRecording } from './walk.js';
 
 interface SensorsOptions {
-  readonly config: string;
+  readonly config?: string;
   readonly recording?: string;
+  readonly url?: string;
   readonly unit?: string;
   readonly store?: string;
-  readonly places: string;
+  readonly places?: string;
   readonly all?: boolean;
   readonly json?: boolean;
 }
@@ -76,7 +79,7 @@ async function weigh(
   }
 }
 
-function parsePlaces(text: string): number {
+function parsePlaces(text = '10'): number {
   if (/^\d{1,3}$/.test(text) && Number(text) <= 100) return Number(text);
   throw new RockhourError(
     'USAGE',
@@ -90,19 +93,58 @@ function chooseStores(unit: UnitDefinition, id: string | undefined): number[] {
   if (id === undefined) return all;
   const chosen = all.filter((s) => unit.stores[s]?.id === id);
   if (chosen.length > 0) return chosen;
-  const ids = unit.stores.map((store) => store.id).join(', ');
-  throw new RockhourError('USAGE', `--store is ${JSON.stringify(id)}; unit ${unit.id} has ${ids}`);
+  throw noStore(
+    unit.id,
+    id,
+    unit.stores.map((store) => store.id),
+  );
+}
+
+function noStore(unit: string, id: string, known: readonly string[]): RockhourError {
+  const text = `--store is ${JSON.stringify(id)}; unit ${unit} has ${known.join(', ')}`;
+  return new RockhourError('USAGE', text);
+}
+
+async function fromConfig(options: SensorsOptions): Promise<UnitWorth> {
+  const { config, recording } = options;
+  if (config === undefined) {
+    throw new RockhourError('USAGE', 'sensors needs --config, or --url of a daemon');
+  }
+  const places = parsePlaces(options.places);
+  const { unit, otherChannels } = loadUnit(config, options.unit);
+  const stores = chooseStores(unit, options.store);
+  const weighing =
+    recording === undefined
+      ? dayWeighing(unit)
+      : await recordingWeighing(unit, recording, otherChannels);
+  return weigh(unit, weighing, stores, places);
+}
+
+/** Over the hours ahead of the state that a daemon holds now. */
+async function fromDaemon(url: string, options: SensorsOptions): Promise<UnitWorth> {
+  const { config, recording, places, store } = options;
+  if ((config ?? recording ?? places) !== undefined) {
+    throw new RockhourError(
+      'USAGE',
+      '--url asks a daemon; --config, --recording and --places do not go with it',
+    );
+  }
+  const unit = options.unit ?? (await onlyUnitOf(url));
+  const path = `/api/units/${encodeURIComponent(unit)}/sensors`;
+  const worth = (await askDaemon(url, path)) as UnitWorth;
+  if (store === undefined) return worth;
+  const stores = worth.stores.filter((one) => one.store === store);
+  if (stores.length > 0) return { ...worth, stores };
+  throw noStore(
+    unit,
+    store,
+    worth.stores.map((one) => one.store),
+  );
 }
 
 async function sensors(options: SensorsOptions): Promise<void> {
-  const places = parsePlaces(options.places);
-  const { unit, otherChannels } = loadUnit(options.config, options.unit);
-  const stores = chooseStores(unit, options.store);
-  const weighing =
-    options.recording === undefined
-      ? dayWeighing(unit)
-      : await recordingWeighing(unit, options.recording, otherChannels);
-  const worth = await weigh(unit, weighing, stores, places);
+  const worth =
+    options.url === undefined ? await fromConfig(options) : await fromDaemon(options.url, options);
   const text = options.json ? JSON.stringify(worth) : sensorsText(worth, options.all ?? false);
   process.stdout.write(`${text}\n`);
 }
@@ -111,11 +153,12 @@ export function register(program: Command): void {
   program
     .command('sensors')
     .description('what losing each thermocouple would do to sigma, and where one more would help')
-    .requiredOption('--config <file>', 'configuration of the site (YAML)')
+    .option('--config <file>', 'configuration of the site (YAML)')
     .option('--recording <file>', 'weigh over this recording (default: a settled day of the model)')
+    .option('--url <address>', 'ask a running daemon: over the hours ahead of the state it holds')
     .option('--unit <id>', 'unit to weigh; needed where the site has several')
     .option('--store <id>', 'only this store')
-    .option('--places <number>', 'places along each string at which one more is tried', '10')
+    .option('--places <number>', 'places along each string where one more is tried (default: 10)')
     .option('--all', 'list every thermocouple, also those that are hardly missed')
     .option('--json', 'answer as one line of JSON')
     .action(sensors);

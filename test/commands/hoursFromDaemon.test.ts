@@ -23,6 +23,8 @@ let url: string;
 async function writeConfig(): Promise<void> {
   const demo = parse(readFileSync('config/demo.yaml', 'utf8'), { merge: true });
   demo.mqtt = { ...demo.mqtt, embedded_port: await freePort() };
+  // Few cells: weighing thermocouples takes seconds with many.
+  demo.units[0].estimator = { ...demo.units[0].estimator, cells: 40 };
   demo.http = { ...demo.http, port: await freePort() };
   demo.store = { ...demo.store, folder: join(folder, 'data') };
   writeFileSync(config, stringify(demo, { aliasDuplicateObjects: false }));
@@ -90,6 +92,22 @@ describe('rockhour hours of a running daemon', () => {
     expect(answer).toMatchObject({ unit: 'vellmoor', time: direct.time, answers: direct.answers });
     expect(answer.age_s).toBeGreaterThan(0);
     expect(answer.answers).toHaveLength(2);
+  });
+
+  it('gives what the thermocouples of the present state are worth, as text', async () => {
+    const { stdout, code } = await rockhour(['sensors', '--url', url, '--store', 'hot', '--all']);
+    expect(code).toBe(0);
+    expect(stdout).toMatch(
+      /^the next \d+\.\d h, (charging|discharging|standing), from the present state$/m,
+    );
+    expect(stdout).toContain('Losses are counted from now on.');
+    const { stores } = await api('/api/units/vellmoor/sensors');
+    const [{ id, string_id }] = stores[0].sensors;
+    expect(stdout).toMatch(new RegExp(`^${id} +${string_id} `, 'm'));
+    expect(stdout).not.toContain('Store cold');
+    const wrong = await rockhour(['sensors', '--url', url, '--store', 'warm']);
+    expect(wrong.stderr).toContain('--store is "warm"; unit vellmoor has hot, cold');
+    expect(wrong.code).toBe(2);
   });
 
   it('passes on what the daemon says of a unit that it does not have', async () => {

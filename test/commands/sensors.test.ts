@@ -67,7 +67,7 @@ describe('rockhour sensors', () => {
     for (const { id } of hot.strings.flatMap((s) => s.thermocouples)) {
       expect(stdout).toMatch(new RegExp(`^${id} `, 'm'));
     }
-    expect(stdout).toMatch(/^Rejected at the end of the recording/m);
+    expect(stdout).toMatch(/^Rejected and not counted above/m);
     expect(stdout).toMatch(/^hot_axis_04 +axis +2\.37 +open +-?\d/m);
     expect(stdout).toMatch(/^group card_h2: 14, all of middle +\+\d/m);
     expect(stdout).not.toMatch(/^string /m);
@@ -79,6 +79,7 @@ describe('rockhour sensors', () => {
   it.each([
     [['--store', 'warm'], 2, '--store is "warm"; unit vellmoor has hot, cold'],
     [['--places', '101'], 2, '--places is "101"; expected a whole number from 0 to 100'],
+    [['--url', 'http://127.0.0.1:1'], 2, '--url asks a daemon; --config'],
     [['--recording', short], 3, 'covers less than 4 h'],
   ])('%j ends with one message', async (args, exit, words) => {
     const { code, stdout, stderr } = await sensors(...args);

@@ -23,12 +23,17 @@ export function sensorsText(answer: UnitWorth, all: boolean): string {
 }
 
 function head({ unit, over }: UnitWorth): string {
+  const counted =
+    over.kind === 'now'
+      ? ' Losses are counted from now on.'
+      : ' A loss is counted once what was known before has left the bed: at first it costs less.';
   return [
     `${unit}: what its thermocouples are worth, over`,
     along(over),
-    '+/- is sigma, one standard deviation of the estimate, rms over that time; sigma % is by how much that',
-    "of the store's state of charge (charge) would change. A loss is counted once what was known before",
-    'it has left the bed: at first it costs less.',
+    ...wrapped(
+      `+/- is sigma, one standard deviation of the estimate, rms over that time; sigma % is by how much that of the store's state of charge (charge) would change.${counted}`,
+      '',
+    ),
   ].join('\n');
 }
 
@@ -37,7 +42,7 @@ function along(over: WorthOver): string {
     case 'recording':
       return `the second half of ${over.recording} (${over.covered_h.toFixed(1)} h)`;
     case 'now':
-      return `the next ${over.hours.toFixed(1)} h, ${DOING[over.mode]}`;
+      return `the next ${over.hours.toFixed(1)} h, ${DOING[over.mode]}, from the present state`;
     case 'day':
       return `a settled day: ${over.charge_h.toFixed(1)} h charging, ${over.discharge_h.toFixed(1)} h discharging at rated power, ${over.stand_h.toFixed(1)} h standing`;
   }
@@ -107,7 +112,8 @@ function losses(store: StoreWorth, inUse: readonly SensorWorth[], all: boolean):
   const [most] = rest;
   if (most !== undefined) {
     const names = rest.map((s) => s.id).join(', ');
-    lines.push(wrap(`Hardly missed, one at a time (${signed(most.rise)} % at most): ${names}`));
+    const text = `Hardly missed, one at a time (${signed(most.rise)} % at most): ${names}`;
+    lines.push(...wrapped(text, '  '));
   }
   return lines.join('\n');
 }
@@ -123,7 +129,7 @@ function repairs(out: readonly SensorWorth[], rejected: readonly RejectedSensor[
     percent(s.store.soc_sigma_rms),
   ]);
   return [
-    'Rejected at the end of the recording and not counted above; what repair would do:',
+    'Rejected and not counted above; what repair would do:',
     table(['repaired', 'string', 'x m', 'now', ...SIGMA.slice(0, 2)], rows),
   ].join('\n');
 }
@@ -181,15 +187,15 @@ function oneMore(store: StoreWorth): string {
   ].join('\n');
 }
 
-function wrap(text: string): string {
+/** Lines of at most WIDTH characters; all but the first begin with the indent. */
+function wrapped(text: string, indent: string): string[] {
   const lines: string[] = [];
   let line = '';
   for (const word of text.split(' ')) {
-    if (line.length + word.length + 1 > WIDTH) {
+    if (line !== '' && line.length + word.length + 1 > WIDTH) {
       lines.push(line);
-      line = ' ';
-    }
-    line = line === '' ? word : `${line} ${word}`;
+      line = indent + word;
+    } else line = line === '' ? word : `${line} ${word}`;
   }
-  return [...lines, line].join('\n');
+  return [...lines, line];
 }
