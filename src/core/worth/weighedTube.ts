@@ -106,12 +106,12 @@ function readsOf(tube: WeighedTube, id: string): boolean {
 
 /** Where each state of a layout stands in that of the same string with sensors added at its end. */
 function places(from: TubeLayout, to: TubeLayout): Int32Array {
-  return Int32Array.from({ length: from.size }, (_, i) => {
-    if (i < from.offset) return i;
-    if (i < from.position) return to.offset + (i - from.offset);
-    if (i < from.group) return to.position + (i - from.position);
-    return to.group + (i - from.group);
-  });
+  const more = to.sensors - from.sensors;
+  const behind = (i: number, block: number): number => (i >= block + from.sensors ? more : 0);
+  return Int32Array.from(
+    { length: from.size },
+    (_, i) => i + behind(i, from.offset) + behind(i, from.position),
+  );
 }
 
 /** Puts a tube's mean where another's is; states that the other does not have stay. */
