@@ -1,3 +1,4 @@
+import { type HeatCapacity, heatCapacities, withHeatCapacity } from './dispatch/heatCapacity.js';
 import { learnMachine } from './dispatch/unitHours.js';
 import type { FrontEstimate, FrontReason } from './estimate.js';
 import type { Scan } from './scan/scan.js';
@@ -67,7 +68,7 @@ export function takeIn(model: UnitModel, state: UnitState, raw: Scan): Taken {
     if (state.seen_ms !== null && scan.time_ms - state.seen_ms > FORGET_MS) forget(model, state);
     state.seen_ms = scan.time_ms;
   }
-  const stores = model.stores.map((store, s): TakenStore => {
+  const tracked = model.stores.map((store, s): TakenStore => {
     const travel = unknownTravel(model, state, s, dt_s, conditions);
     const storeState = state.stores[s] as StoreState;
     // Nothing to move before the first readings, nor over the gap in which the beds were forgotten.
@@ -103,6 +104,11 @@ export function takeIn(model: UnitModel, state: UnitState, raw: Scan): Taken {
   });
   const modeChanged = conditions.mode !== state.mode;
   learnMachine(model, state, conditions, dt_s, modeChanged, outlets);
+  const capacity = heatCapacities(model, state);
+  const stores = tracked.map((store, s) => ({
+    ...store,
+    energy: withHeatCapacity(store.energy, capacity[s] as HeatCapacity),
+  }));
   state.mode = conditions.mode;
   state.ambient_K = conditions.ambient_K;
   model.stores.forEach((store, s) => {

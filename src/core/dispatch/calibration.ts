@@ -5,6 +5,7 @@ import { streamsOf } from '../track/streams.js';
 import type { UnitModel } from '../unitModel.js';
 import type { UnitState } from '../unitState.js';
 import { type Gaussian, independent, observe, transformed } from './gaussian.js';
+import type { HeatCapacity } from './heatCapacity.js';
 import { machineSpread } from './machineSpread.js';
 
 /** What meter, rock and machine are together taken to be, for a discharge at one power. */
@@ -14,8 +15,8 @@ export interface Calibration {
    * ln(work per metered kilogram over that of the model at rated flow): joint, one vector.
    */
   readonly joint: Gaussian;
-  /** Of each store ln(heat capacity over the configured one) and its sigma. */
-  readonly capacity: readonly { readonly log: number; readonly sigma: number }[];
+  /** Heat capacity of each store's rock. */
+  readonly capacity: readonly HeatCapacity[];
 }
 
 /**
