@@ -83,6 +83,8 @@ export interface RunOptions {
   readonly through?: (reading: Reading, scan: number) => Reading | null;
   /** Whether hours are asked where the truth knows them. */
   readonly hours: boolean;
+  /** Only every so many of those; 1 if absent. */
+  readonly hours_every?: number;
 }
 
 /** Runs the estimator, and beside it straight lines, over a recording. */
@@ -97,7 +99,9 @@ export function runSeries(unit: UnitDefinition, recording: Recording, options: R
   );
   const read = readerOf(unit, recording, options);
   const known = new Map<number, Recording['header']['hours'][number][]>();
-  for (const h of recording.header.hours) {
+  const every = options.hours_every ?? 1;
+  for (const [i, h] of recording.header.hours.entries()) {
+    if ((i + 1) % every !== 0) continue;
     known.set(h.scan, [...(known.get(h.scan) ?? []), h]);
   }
   const hours: HoursCase[] = [];

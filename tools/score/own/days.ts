@@ -31,7 +31,7 @@ export const DAYS: readonly Scenario[] = [
       segments: (g) => scheduleFor('partial', g, 7 * 24 * H),
       hours_every_min: 180,
     },
-    every: 2,
+    every: 3,
     rows: [row('all', 'class'), row('five', 'class')],
     cycle_h: 7.5,
   },

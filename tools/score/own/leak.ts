@@ -1,4 +1,5 @@
 import type { PlantChange } from '../../../test/plant/faults.js';
+import { RandomStream } from '../../../test/plant/random.js';
 import { scheduleFor } from '../../../test/plant/schedules.js';
 import { base, H, row } from '../base.js';
 import { type Figure, figure, ownValues, rms, worst } from '../figure.js';
@@ -12,13 +13,14 @@ const SHARE = 0.005;
 /** The rest after the first charge [h]. */
 const REST_H = [5, 41] as const;
 
-const leakOf = (seed: number) => ({
-  store: seed % 2 === 0 ? 'hot' : 'cold',
-  // The gas drives the charge out, or on towards the discharge inlet, in turn.
-  share: seed % 4 < 2 ? -SHARE : SHARE,
-});
+/** Store and direction by lot: the gas drives the charge out, or on towards the discharge inlet. */
+function leakOf(seed: number): { store: 'hot' | 'cold'; share: number } {
+  const random = new RandomStream(seed, 'score leak');
+  const store = random.uniform() < 0.5 ? 'hot' : 'cold';
+  return { store, share: random.uniform() < 0.5 ? -SHARE : SHARE };
+}
 
-/** A valve leaks through one store from the start of the rest on: stores and directions in turn. */
+/** A valve leaks through one store from the start of the rest on. */
 const leak = (seed: number): PlantChange[] => [
   { kind: 'leak', at_s: REST_H[0] * H, ...leakOf(seed) },
 ];
@@ -66,6 +68,7 @@ export const LEAK: Scenario = {
     changes: leak,
     hours_every_min: null,
   },
+  every: 2,
   rows: [row('all', 'class'), row('five', 'class')],
   run: plain(false, leakOwn),
   figures: (_, results) => leakFigures(results),

@@ -212,6 +212,7 @@ export const SCANS: Scenario = {
     segments: cycle,
     hours_every_min: null,
   },
+  every: 2,
   rows: [
     ...rowsOf('all', ['jittered', 'uneven', 'late', 'exception', 'sparse', 'silent']),
     ...rowsOf('five', ['jittered', 'exception', 'sparse']),
