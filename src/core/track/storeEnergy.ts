@@ -37,10 +37,14 @@ export function referenceEnthalpies(model: StoreModel): { charged: number; disch
  * Energy of a store from its tubes.
  *
  * soc = sum_k w_k mean_i (H_ki - H_d)/(H_c - H_d), w_k the area shares. Its variance: each tube's is
- * e'P e with e_i = C_i/(N (H_c - H_d)); the part that comes from what the tubes share (card and
- * inlet offsets, the meter) adds up as if one, the rest as independent:
+ * e'P e with e_i = C_i/(N (H_c - H_d)). What tubes have in common (a card, an inlet's thermocouple,
+ * the meter) makes their errors correlated: cause c of variance p_c explains a_kc = cov(soc_k, c)/
+ * sqrt(p_c) of tube k, and
  *
- *   var = sum w^2 var (1 - s) + (sum w sqrt(var s))^2
+ *   var = sum_k w_k^2 var_k + 2 sum_(k<l) w_k w_l sum_c a_kc a_lc rho_c,   rho_c = sqrt(p_kc p_lc)/p_0
+ *
+ * p_0 the variance before any reading: each tube learns a cause from its own readings, so that of
+ * two tubes' errors in it only the part p/p_0 that neither has seen is still the same one.
  *
  * Stored energy carries the uncertainty of the rock's heat capacity on top, which the state of
  * charge, a ratio, does not.
@@ -51,25 +55,26 @@ export function storeEnergy(model: StoreModel, state: StoreState): StoreEnergy {
   const bed = model.store.bed;
   const capacity = (Math.abs(span) * bed.area_m2 * bed.length_m) / J_PER_MWH;
   let soc = 0;
-  let independent = 0;
-  let common = 0;
-  let aligned = 0;
-  let squares = 0;
   for (const { share, enthalpy } of streamsOf(model, state)) {
     let sum = 0;
     for (const h of enthalpy) sum += h - discharged;
     soc += (share * sum) / (enthalpy.length * span);
   }
+  const tubes = model.tubes.map((tube, k) => tubeVariance(tube, state.tubes[k] as TubeState, span));
+  let aligned = 0;
+  let squares = 0;
+  let shared = 0;
   model.tubes.forEach((tube, k) => {
-    const tubeState = state.tubes[k] as TubeState;
     const w = tube.string.area_share;
-    const { variance, shared } = tubeVariance(tube, tubeState, span);
-    independent += w * w * variance * (1 - shared);
-    common += w * Math.sqrt(variance * shared);
-    aligned += w * Math.sqrt(variance);
-    squares += w * w * variance;
+    const own = tubes[k] as TubeVariance;
+    aligned += w * Math.sqrt(own.variance);
+    squares += w * w * own.variance;
+    for (let l = 0; l < k; l++) {
+      const other = tubes[l] as TubeVariance;
+      shared += 2 * w * (model.tubes[l] as TubeModel).string.area_share * common(own, other);
+    }
   });
-  const variance = independent + common * common;
+  const variance = Math.max(squares + shared, squares / Math.max(1, tubes.length));
   const unseen = unseenSigma(model, state);
   const soc_sigma = Math.hypot(Math.sqrt(variance), unseen);
   const capacitySigma = model.tubes[0]?.estimator.heat_capacity_sigma ?? 0;
@@ -85,40 +90,53 @@ export function storeEnergy(model: StoreModel, state: StoreState): StoreEnergy {
   };
 }
 
-/** Variance of one tube's state of charge, and the share of it that other tubes have in common. */
-function tubeVariance(
-  tube: TubeModel,
-  state: TubeState,
-  span: number,
-): { variance: number; shared: number } {
-  const { cells, size } = tube.layout;
+interface TubeVariance {
+  /** Of the tube's state of charge. */
+  readonly variance: number;
+  /** By cause: what it explains, as a standard deviation with a sign, and p/p_0. */
+  readonly causes: ReadonlyMap<string, { readonly part: number; readonly unseen: number }>;
+}
+
+/** Covariance of two tubes' states of charge through what they have in common. */
+function common(a: TubeVariance, b: TubeVariance): number {
+  let sum = 0;
+  for (const [name, own] of a.causes) {
+    const other = b.causes.get(name);
+    if (other === undefined) continue;
+    sum += own.part * other.part * Math.min(1, Math.sqrt(own.unseen * other.unseen));
+  }
+  return sum;
+}
+
+function tubeVariance(tube: TubeModel, state: TubeState, span: number): TubeVariance {
+  const { layout, estimator } = tube;
+  const { cells, size } = layout;
   const p = state.covariance;
   const e = new Float64Array(cells);
   for (let i = 0; i < cells; i++) {
     e[i] = heatCapacityAt(tube, state.enthalpy[i] as number) / (cells * span);
   }
-  const projected = new Float64Array(size);
-  for (let i = 0; i < cells; i++) {
-    const a = e[i] as number;
-    for (let j = 0; j < size; j++) {
-      projected[j] = (projected[j] as number) + a * (p[i * size + j] as number);
-    }
-  }
+  // P is symmetric: rows for columns, contiguous.
+  const projectedOn = (index: number): number => {
+    let sum = 0;
+    for (let i = 0; i < cells; i++) sum += (e[i] as number) * (p[index * size + i] as number);
+    return sum;
+  };
   let variance = 0;
-  for (let i = 0; i < cells; i++) variance += (e[i] as number) * (projected[i] as number);
-  variance = Math.max(variance, 0);
-  const commonStates = [
-    tube.layout.flow,
-    tube.layout.inlet.charge_inlet,
-    tube.layout.inlet.discharge_inlet,
-    ...tube.layout.groups.map((_, g) => tube.layout.group + g),
-  ];
-  let explained = 0;
-  for (const index of commonStates) {
+  for (let i = 0; i < cells; i++) variance += (e[i] as number) * projectedOn(i);
+  const causes = new Map<string, { part: number; unseen: number }>();
+  const add = (name: string, index: number, prior: number): void => {
     const own = p[index * size + index] as number;
-    if (own > 0) explained += (projected[index] as number) ** 2 / own;
-  }
-  return { variance, shared: variance > 0 ? Math.min(1, explained / variance) : 0 };
+    if (!(own > 0) || !(prior > 0)) return;
+    causes.set(name, { part: projectedOn(index) / Math.sqrt(own), unseen: own / (prior * prior) });
+  };
+  add('flow', layout.flow, estimator.flow_factor_sigma);
+  add('charge_inlet', layout.inlet.charge_inlet, estimator.inlet_sigma_K);
+  add('discharge_inlet', layout.inlet.discharge_inlet, estimator.inlet_sigma_K);
+  layout.groups.forEach((name, g) => {
+    add(`group ${name}`, layout.group + g, estimator.group_offset_sigma_K);
+  });
+  return { variance: Math.max(variance, 0), causes };
 }
 
 function heatCapacityAt(tube: TubeModel, enthalpy: number): number {

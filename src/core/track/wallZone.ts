@@ -7,10 +7,12 @@ import type { TubeDrive, TubeModel, TubeScratch, TubeState } from './tube.js';
  * The rock at the wall that no thermocouple sees: it gives heat to the vessel's steel and through it
  * to ambient, so its front lags behind that of the outermost string, while the looser packing there
  * lets it run ahead. Its thickness is the depth that heat penetrates within half a cycle,
- * 2 sqrt(alpha t), in layers that grow inwards from the wall.
+ * 2 sqrt(alpha t), in layers that grow inwards from the wall up to the outermost string. That string
+ * may itself stand where the wall is felt: what lies inwards of it is one more layer, whose heat goes
+ * to the rock at the string.
  *
  *   steel:  C_w dTw/dt = h_w (T_1 - Tw) - U (Tw - Tamb)                       per mantle area
- *   layer:  the bed's step, and heat to the next layer, the tube or the steel
+ *   layer:  the bed's step, and heat to its neighbours (layer, rock at the string, steel)
  *
  * It has no filter of its own: factors are those of the outermost tube, and each correction of that
  * tube's temperatures moves the layers alike.
@@ -20,7 +22,7 @@ export interface WallModel {
   readonly tube: number;
   /** Share of the bed's cross-section, all layers together. */
   readonly share: number;
-  /** From the tube outwards; the last touches the wall. */
+  /** What lies inwards of the string first, if anything; then from the string to the wall. */
   readonly layers: readonly WallLayer[];
   /** Per volume of the last layer: steel's heat capacity [J/m3K], exchange with steel, loss [W/m3K]. */
   readonly steel_J_m3K: number;
@@ -35,9 +37,11 @@ export interface WallLayer {
   readonly share: number;
   /** Flow per area over that of the tube. */
   readonly flowFactor: number;
-  /** Radial exchange with what lies inwards (tube or layer) per conductivity and volume [1/m2]. */
+  /** Index of the layer on the string's side; -1 = the tube. */
+  readonly towards: number;
+  /** Radial exchange with it per conductivity and volume [1/m2]. */
   readonly radial_1_m2: number;
-  /** Volume over that of what lies inwards. */
+  /** Volume over that of it. */
   readonly volumeRatio: number;
 }
 
@@ -53,6 +57,8 @@ export interface WallState {
 const HALF_CYCLE_S = 6 * 3600;
 /** Layers as shares of that depth, from the tube outwards: three resolve it within some per cent. */
 const LAYERS = [1, 0.5, 0.25] as const;
+/** A layer inwards of the string below this share of the bed is left to the tube. */
+const LEAST_SHARE = 0.01;
 /** Contact and radiation between rock and wall [W/m2K]: common practice for a packed wall, no source. */
 const CONTACT_W_M2K = 10;
 /** Radial mixing over G cf d (Wakao & Kaguei 1982, radial dispersion 0.1 Re Pr k_f). */
@@ -66,8 +72,8 @@ const RADIAL_MIXING = 0.1;
  */
 const WALL_FLOW_DIAMETERS = 0.35;
 const WALL_FLOW_SIGMA_DIAMETERS = 0.15;
-/** At most this share of the outermost tube is layers. */
-const MOST_OF_TUBE = 0.7;
+/** Of the rock between the outermost string and the wall, at most this share is layers. */
+const MOST_OF_WAY = 0.8;
 
 /** null for a bed without wall steel in its definition. */
 export function wallModel(tables: BedTables, tubes: readonly TubeModel[]): WallModel | null {
@@ -82,30 +88,47 @@ export function wallModel(tables: BedTables, tubes: readonly TubeModel[]): WallM
   const k = tables.stagnant[middle] as number;
   const alpha = k / (tables.heatCapacity[middle] as number);
   const radius = bed.diameter_m / 2;
-  const outer = (tubes[tube] as TubeModel).string.area_share;
+  const { radius_m, area_share } = (tubes[tube] as TubeModel).string;
   const total = LAYERS.reduce((sum, layer) => sum + layer, 0);
-  const most = radius * (1 - Math.sqrt(1 - MOST_OF_TUBE * outer));
-  const depth = Math.min(most / total, 2 * Math.sqrt(alpha * HALF_CYCLE_S));
-  const inside = radius * Math.sqrt(1 - outer);
-  const edges = [radius - total * depth];
-  for (const layer of LAYERS) edges.push((edges[edges.length - 1] as number) + layer * depth);
+  const way = Math.max(0.1 * radius, radius - radius_m);
+  const depth = Math.min((MOST_OF_WAY * way) / total, 2 * Math.sqrt(alpha * HALF_CYCLE_S));
+  // The tube itself is the rock about the string, as far inwards as outwards.
+  const inside = radius * Math.sqrt(1 - area_share);
+  const outwards = radius - total * depth;
+  const inwards = Math.max(inside, 2 * (radius - way) - outwards);
   const shareOf = (from: number, to: number): number => (to * to - from * from) / (radius * radius);
-  const last = LAYERS.length - 1;
-  const thickness = (LAYERS[last] as number) * depth;
+  const own = shareOf(inwards, outwards);
+  const thickness = (LAYERS[LAYERS.length - 1] as number) * depth;
   const diameters = bed.particle_diameter_m / thickness;
-  const layers = LAYERS.map((_, i): WallLayer => {
-    const from = edges[i] as number;
-    const to = edges[i + 1] as number;
-    const inner = i === 0 ? inside : (edges[i - 1] as number);
-    const share = shareOf(from, to);
-    return {
+  // Area of the cylinder between per volume, over the distance of the middles.
+  const radial = (edge: number, share: number, apart: number): number =>
+    (2 * Math.PI * edge) / (share * bed.area_m2) / apart;
+  const layers: WallLayer[] = [];
+  const innermost = shareOf(inside, inwards);
+  if (innermost > LEAST_SHARE) {
+    layers.push({
+      share: innermost,
+      flowFactor: 1,
+      towards: -1,
+      radial_1_m2: radial(inwards, innermost, (outwards - inside) / 2),
+      volumeRatio: innermost / own,
+    });
+  }
+  let edge = outwards;
+  LAYERS.forEach((layer, i) => {
+    const to = edge + layer * depth;
+    const share = shareOf(edge, to);
+    const before = i === 0 ? inwards : edge - (LAYERS[i - 1] as number) * depth;
+    layers.push({
       share,
-      flowFactor: i === last ? 1 + WALL_FLOW_DIAMETERS * diameters : 1,
-      // Area of the cylinder between per volume, over the distance of the middles.
-      radial_1_m2: (2 * Math.PI * from) / (share * bed.area_m2) / ((to - inner) / 2),
-      volumeRatio: share / shareOf(inner, from),
-    };
+      flowFactor: i === LAYERS.length - 1 ? 1 + WALL_FLOW_DIAMETERS * diameters : 1,
+      towards: i === 0 ? -1 : layers.length - 1,
+      radial_1_m2: radial(edge, share, (to - before) / 2),
+      volumeRatio: share / (i === 0 ? own : (layers[layers.length - 1] as WallLayer).share),
+    });
+    edge = to;
   });
+  const last = layers.length - 1;
   // Mantle area per volume of the last layer.
   const perVolume = (Math.PI * bed.diameter_m) / ((layers[last] as WallLayer).share * bed.area_m2);
   return {
@@ -177,7 +200,7 @@ const MOST_MOVED = 0.25;
  * Heat between layers, steel and the outermost tube over a step, all changed in place. Steel relaxes
  * exactly towards its layer and ambient; the rest is explicit, in parts short enough for that.
  *
- * @param layers enthalpy of each layer's cells, from the tube outwards [J/m3]
+ * @param layers enthalpy of each layer's cells, as in the model [J/m3]
  * @param steel_K temperature of the steel beside each cell [K]
  * @param tube enthalpy of the outermost tube's cells [J/m3]
  */
@@ -214,18 +237,17 @@ export function exchangeAtWall(
       const next = settled + (steel - settled) * fade;
       // What the steel took, and what it lost meanwhile at its mean temperature.
       const lost = u * dt * (0.5 * (steel + next) - step.ambient_K);
-      let outer = t;
       for (let l = last; l >= 0; l--) {
-        const { radial_1_m2, volumeRatio } = model.layers[l] as WallLayer;
-        const inwards = l > 0 ? (layers[l - 1] as Float64Array) : tube;
+        const { towards, radial_1_m2, volumeRatio } = model.layers[l] as WallLayer;
+        const inwards = towards >= 0 ? (layers[towards] as Float64Array) : tube;
         const own = layers[l] as Float64Array;
+        const outer = temperatureAt(tables, own[i] as number);
         const inner = temperatureAt(tables, inwards[i] as number);
         const s = Math.floor((own[i] as number) * inverse_dH);
         const k = (stagnant[s < 0 ? 0 : s < segments ? s : segments - 1] as number) + mixing;
         const across = radial_1_m2 * k * dt * (outer - inner);
         own[i] = (own[i] as number) - across;
         inwards[i] = (inwards[i] as number) + across * volumeRatio;
-        outer = inner;
       }
       steel_K[i] = next;
       outermost[i] = (outermost[i] as number) - c * (next - steel) - lost;
