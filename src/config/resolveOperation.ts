@@ -15,9 +15,13 @@ const kelvin = (t: number): number => t + ZERO_CELSIUS_K;
 const kelvinOrNull = (t: number | undefined): number | null => (t === undefined ? null : kelvin(t));
 
 export function resolveMachine(block: MachineBlock): MachineDefinition {
-  const auxiliaries = {
+  const common = {
     auxiliary_running_W: block.auxiliary_running_kW * 1e3,
     auxiliary_standing_W: block.auxiliary_standing_kW * 1e3,
+    work_factor: {
+      charge: block.work_factor_charge,
+      discharge: block.work_factor_discharge,
+    },
   };
   if (block.kind === 'gas_cycle') {
     return {
@@ -34,7 +38,7 @@ export function resolveMachine(block: MachineBlock): MachineDefinition {
       cooler_approach_K: block.cooler_approach_K,
       motor_efficiency: block.motor_efficiency,
       generator_efficiency: block.generator_efficiency,
-      ...auxiliaries,
+      ...common,
     };
   }
   return {
@@ -45,7 +49,7 @@ export function resolveMachine(block: MachineBlock): MachineDefinition {
     return_K: kelvin(block.return_degC),
     charge_inlet_K: kelvin(block.charge_inlet_degC),
     charge_efficiency: block.charge_efficiency,
-    ...auxiliaries,
+    ...common,
   };
 }
 

@@ -83,6 +83,7 @@ export function resolveStore(store: StoreBlock): StoreDefinition {
         discharge_inlet: ends.discharge_inlet_volume_m3,
       },
     },
+    ...(factors.gas_share === undefined ? {} : { gas_share: factors.gas_share }),
     reference_hot_K: store.reference_hot_degC + ZERO_CELSIUS_K,
     reference_cold_K: store.reference_cold_degC + ZERO_CELSIUS_K,
     strings: store.strings.map((string, s) => {

@@ -99,6 +99,8 @@ export interface StoreDefinition {
   readonly reference_hot_K: number;
   readonly reference_cold_K: number;
   readonly strings: readonly StringDefinition[];
+  /** Share of the gas that this store's junctions see, net of their lag; else the estimator's. */
+  readonly gas_share?: number;
 }
 
 /** Who measures what. `store` and `string` are config ids. */
@@ -136,7 +138,11 @@ export interface ChannelDefinition {
   readonly cold_junction: string | number | null;
 }
 
+/** The plant's electricity per kilogram over the machine model's, tuned [-]; absent = 1. */
+export type WorkFactors = Readonly<Record<Direction, number>>;
+
 export interface GasCycleDefinition {
+  readonly work_factor?: WorkFactors;
   readonly kind: 'gas_cycle';
   readonly gas: Fluid;
   readonly high_pressure_Pa: number;
@@ -159,6 +165,7 @@ export interface GasCycleDefinition {
 }
 
 export interface EfficiencyTableDefinition {
+  readonly work_factor?: WorkFactors;
   readonly kind: 'efficiency_table';
   readonly fluid: Fluid;
   /** Net electrical over thermal power when discharging, against the store's outlet temperature, ascending [K]. */

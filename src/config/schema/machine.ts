@@ -15,6 +15,18 @@ const auxiliaries = {
     'Power of the auxiliaries while standing.',
     8,
   ).default(0),
+  work_factor_charge: key(
+    z.number().min(0.3).max(3),
+    '-',
+    'Power per kilogram while charging, tuned: the plant over this model.',
+    1,
+  ).default(1),
+  work_factor_discharge: key(
+    z.number().min(0.3).max(3),
+    '-',
+    'Power per kilogram while discharging, tuned: the plant over this model.',
+    1,
+  ).default(1),
 };
 const efficiency = () => z.number().gt(0).max(1);
 

@@ -41,6 +41,13 @@ const factors = z.strictObject({
   pressure_drop: factor('pressure drop'),
   heat_capacity: factor('heat capacity of the solid'),
   loss: factor('heat losses'),
+  gas_share: key(
+    z.number().min(-1).max(1),
+    '-',
+    'Share of the gas temperature that the thermocouples of this store see, net of their lag.',
+    0.1,
+    'estimator.gas_share',
+  ).optional(),
 });
 
 const coefficient = (where: string) =>

@@ -1,4 +1,5 @@
 import type { Direction, MachineDefinition } from '../definitions.js';
+import { requirePositive } from '../misuse.js';
 import { createEfficiencyTable } from './efficiencyTable.js';
 import { createGasCycle } from './gasCycle.js';
 
@@ -76,10 +77,18 @@ export interface Machine {
  *   power below 0, a temperature not above 0 or a store's outlet that is missing
  */
 export function createMachine(definition: MachineDefinition): Machine {
-  const operate =
+  const model =
     definition.kind === 'gas_cycle'
       ? createGasCycle(definition)
       : createEfficiencyTable(definition);
+  const factors = definition.work_factor ?? { charge: 1, discharge: 1 };
+  requirePositive('work_factor.charge', factors.charge);
+  requirePositive('work_factor.discharge', factors.discharge);
+  // Tuned work is electricity alone: shaft and temperatures stay the model's.
+  const operate: typeof model = (direction, outlets, ambient_K) => {
+    const point = model(direction, outlets, ambient_K);
+    return { ...point, specificWork_J_kg: point.specificWork_J_kg * factors[direction] };
+  };
   const running = definition.auxiliary_running_W;
   const standing = definition.auxiliary_standing_W;
   if (!(running >= 0 && standing >= 0)) {

@@ -65,9 +65,13 @@ export interface TubeScratch {
 export function tubeModel(
   store: StoreDefinition,
   string: StringDefinition,
-  estimator: EstimatorDefinition,
+  unitEstimator: EstimatorDefinition,
   tables: BedTables,
 ): TubeModel {
+  const estimator =
+    store.gas_share === undefined
+      ? unitEstimator
+      : { ...unitEstimator, gas_share: store.gas_share };
   // Heat lost through the mantle is felt near the wall first (2 sqrt(alpha t), about 0.6 m a day):
   // the outermost tube carries it all, the inner ones none.
   const outermost = store.strings.reduce((a, b) => (b.radius_m > a.radius_m ? b : a));
