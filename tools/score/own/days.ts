@@ -1,6 +1,8 @@
 import { scheduleFor } from '../../../test/plant/schedules.js';
 import { base, cycle, day, H, row } from '../base.js';
+import { withKnownMachine } from '../knownMachine.js';
 import type { Scenario } from '../scenario.js';
+import { plain } from './plain.js';
 
 /** Healthy plants on ordinary days, in a long week and at rest. */
 export const DAYS: readonly Scenario[] = [
@@ -11,6 +13,7 @@ export const DAYS: readonly Scenario[] = [
     words: 'nominal day, machine known',
     truth: day('known'),
     rows: [row('all', 'independent'), row('five', 'independent'), row('three', 'independent')],
+    run: plain(true, undefined, withKnownMachine),
   },
   {
     ...base,
