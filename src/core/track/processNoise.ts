@@ -129,15 +129,29 @@ function addShapeNoise(
   travel_m: number,
 ): void {
   const root = SHAPE_PER_METRE_M * Math.sqrt(travel_m);
-  const reach = Math.ceil((2.5 * SHAPE_LENGTH_M) / dx);
+  const reach = Math.ceil((2 * COMPACT_SCALE * SHAPE_LENGTH_M) / dx);
   for (let d = 0; d <= reach; d++) {
-    const correlation = Math.exp(-0.5 * ((d * dx) / SHAPE_LENGTH_M) ** 2);
+    const correlation = compactCorrelation((d * dx) / SHAPE_LENGTH_M);
     for (let i = 0; i + d < cells; i++) {
       const a = root * (slope[i] as number) * (root * (slope[i + d] as number)) * correlation;
       p[i * size + i + d] = (p[i * size + i + d] as number) + a;
       if (d > 0) p[(i + d) * size + i] = (p[(i + d) * size + i] as number) + a;
     }
   }
+}
+
+/** Half the support of the correlation [lengths] at which it curves at 0 as exp(-x^2/2) does. */
+const COMPACT_SCALE = Math.sqrt(10 / 3);
+
+/**
+ * Correlation at a distance of x lengths: Gaspari & Cohn 1999, eq. 4.10, positive definite and zero
+ * beyond its support, which a Gaussian cut off is not.
+ */
+function compactCorrelation(x: number): number {
+  const z = x / COMPACT_SCALE;
+  if (z >= 2) return 0;
+  if (z <= 1) return 1 + z * z * (-5 / 3 + z * (5 / 8 + z * (1 / 2 - z / 4)));
+  return 4 - 5 * z + z * z * (5 / 3 + z * (5 / 8 + z * (-1 / 2 + z / 12))) - 2 / (3 * z);
 }
 
 /** White error of the inlet temperature: response of the cells to 1 K at the inlet in this step. */
