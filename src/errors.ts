@@ -64,6 +64,11 @@ export const ERRORS = {
     meaning: 'Time runs back in the recording.',
     advice: 'Sort the rows by time, or split the recording there.',
   },
+  RECORDING_TELLS_NOTHING: {
+    exit: 'input',
+    meaning: 'The recording can be read, but nothing can be tuned to it; the message says why.',
+    advice: 'Take a recording of at least a charge and a discharge, with all channels.',
+  },
   OUTPUT_UNWRITABLE: {
     exit: 'outside',
     meaning: 'An output file cannot be written.',

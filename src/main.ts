@@ -6,6 +6,7 @@ import { register as registerHours } from './commands/hours.js';
 import { register as registerReplay } from './commands/replay.js';
 import { packageVersion, register as registerRun } from './commands/run.js';
 import { register as registerSensors } from './commands/sensors.js';
+import { register as registerTune } from './commands/tune.js';
 import { EXIT_CODES, exitCodeOf, explain, RockhourError } from './errors.js';
 
 /** In the order of the help. */
@@ -14,6 +15,7 @@ const COMMANDS = [
   registerDemo,
   registerReplay,
   registerHours,
+  registerTune,
   registerSensors,
   registerCheck,
 ];

@@ -1,0 +1,307 @@
+import type { EstimatorDefinition } from '../definitions.js';
+import type { StoreModel } from '../track/storeTracker.js';
+import { STORE_PARAMETERS, type StoreFit } from './fitTypes.js';
+import { inverse, solve } from './linear.js';
+import { KEPT, type StringNormal, stringNormal } from './normal.js';
+import { JUNCTION, NUISANCE, type TunePriors } from './priors.js';
+import type { TuneBin } from './record.js';
+import { type SensorResidual, sensorResiduals } from './residuals.js';
+import { ringsOf } from './rings.js';
+import type { RunPlan, StoreGuess } from './simulate.js';
+import {
+  type HatColumns,
+  hatColumns,
+  type StringColumns,
+  type StringData,
+  type StringState,
+  startStringState,
+  storeColumns,
+  stringData,
+} from './stringColumns.js';
+
+const COUNT = STORE_PARAMETERS.length;
+/** Noise of the first rounds over the last [-]: a front that stands elsewhere is drawn in step by step. */
+const ROUGH = [30, 5] as const;
+const MOST_ROUNDS = 12;
+/** A round that moves nothing by more than this share of its sigma ends the search. */
+const SETTLED = 0.05;
+/** Largest step of a parameter in one round. */
+const LARGEST = [0.5, 0.7, 0.7, 0.5, 5, 5, 0.02, 60, 0.5, 0.1] as const;
+/** Rounding of the model itself: below this nothing is believed of a reading [K]. */
+const LEAST_NOISE_K = 0.02;
+/** A thermocouple that leaves this much, and so many times more than its fellows, is left out. */
+const ODD_K = 3;
+const ODD_TIMES = 5;
+
+/** Cells of the fit's profiles: so many to a piece of rock at most, so that the scheme spreads no front. */
+const CELL_PIECES = 2.5;
+const MOST_CELLS = 400;
+
+interface Guess {
+  readonly values: Float64Array;
+  readonly strings: StringState[];
+}
+
+/**
+ * Fits one store's parameters to a recording: output error, that is, the bed model is driven by the
+ * metered flow and the measured inlet gas alone, and its readings held against the recorded ones.
+ * Gauss-Newton with difference quotients; priors on everything; instruments' errors, the starting
+ * profile, wobble of fronts and unlike strings are fitted along as nuisance, each within its class,
+ * so that their uncertainty stands in the covariance of what is asked. What is left after all that
+ * is correlated in time; it sets the noise of a reading through its integrated autocorrelation.
+ *
+ * @param s index of the store in the bins
+ * @param onRound told after each round, for a progress line
+ */
+export function fitStore(
+  store: StoreModel,
+  estimator: EstimatorDefinition,
+  priors: TunePriors,
+  bins: readonly TuneBin[],
+  s: number,
+  onRound: (round: number) => void = () => undefined,
+): StoreFit {
+  const running = bins.filter((bin) => bin.flow_kg_s !== 0);
+  const plan: RunPlan = {
+    store,
+    rings: ringsOf(store),
+    bins,
+    s,
+    meanFlow_kg_s:
+      running.reduce((sum, bin) => sum + Math.abs(bin.flow_kg_s), 0) / Math.max(1, running.length),
+    positions_m: store.store.strings.map((one) => one.thermocouples.map((t) => t.position_m)),
+  };
+  const { length_m, particle_diameter_m } = store.store.bed;
+  const fine = Math.ceil(length_m / (CELL_PIECES * particle_diameter_m));
+  const cells = Math.min(MOST_CELLS, Math.max(estimator.cells, fine));
+  let first = 0;
+  const data = plan.positions_m.map((row, k) => {
+    const one = stringData(plan, k, first, cells);
+    first += row.length;
+    return one;
+  });
+  const size = COUNT + data.length;
+  const guess: Guess = { values: new Float64Array(size), strings: data.map(startStringState) };
+  guess.values[3] = JUNCTION.share;
+  guess.values[7] = JUNCTION.lag_s;
+  const prior = priorOf(store, estimator, priors, bins, s, size);
+  const leftOut: { id: string; residual_K: number }[] = [];
+  let noise_K: number = estimator.reading_sigma_K;
+  let residual_K = Number.NaN;
+  let measured = 0;
+  let converged = false;
+  let information: Float64Array = new Float64Array(size * size);
+  let hats: HatColumns | null = null;
+  let round = 0;
+  for (; round < MOST_ROUNDS; round++) {
+    const rough = ROUGH[round] ?? 1;
+    const at = storeGuess(guess.values);
+    if (hats === null || round === ROUGH.length) hats = hatColumns(plan, data, at, guess.strings);
+    const columns = storeColumns(plan, data, at, guess.strings, hats, estimator);
+    const normals = data.map((one, k) =>
+      stringNormal(one, columns[k] as StringColumns, bins, s, noise_K * rough, estimator),
+    );
+    const sum = assemble(normals, prior, guess.values, size);
+    information = sum.information;
+    const step = solve(information, size, sum.right);
+    const worst = advance(guess, step, normals, data, information, size);
+    onRound(round + 1);
+    if (rough > 1) continue;
+    const settled = worst < SETTLED;
+    if (settled && measured >= 2) {
+      converged = true;
+      break;
+    }
+    if (worst > 1) continue;
+    const left = leftover(data, columns, normals, step, bins, s, noise_K, estimator);
+    measured++;
+    const typical = median(left.map((one) => one.rms_K));
+    residual_K = Math.sqrt(mean(left.map((one) => one.rms_K ** 2)));
+    const odd = left.filter((one) => one.rms_K > ODD_K && one.rms_K > ODD_TIMES * typical);
+    for (const one of odd) {
+      const own = data[one.string] as StringData;
+      own.used[one.sensor] = false;
+      const id = own.string.thermocouples[one.sensor]?.id ?? '';
+      leftOut.push({ id, residual_K: one.rms_K });
+    }
+    if (odd.length > 0) {
+      measured = 0;
+      continue;
+    }
+    noise_K = Math.max(
+      LEAST_NOISE_K,
+      Math.sqrt(mean(left.map((one) => one.even_K ** 2 * one.lasting))),
+    );
+  }
+  return {
+    values: guess.values,
+    covariance: inverse(information, size),
+    size,
+    residual_K,
+    noise_K,
+    leftOut,
+    iterations: round,
+    converged,
+  };
+}
+
+function storeGuess(v: Float64Array): StoreGuess {
+  return {
+    transfer: v[0] as number,
+    conductivity: v[1] as number,
+    loss: v[2] as number,
+    share: v[3] as number,
+    chargeInlet_K: v[4] as number,
+    dischargeInlet_K: v[5] as number,
+    meterSlope: v[6] as number,
+    lag_s: v[7] as number,
+    wallSteel: v[8] as number,
+  };
+}
+
+interface Prior {
+  readonly mean: Float64Array;
+  readonly sigma: Float64Array;
+}
+
+function priorOf(
+  store: StoreModel,
+  estimator: EstimatorDefinition,
+  priors: TunePriors,
+  bins: readonly TuneBin[],
+  s: number,
+  size: number,
+): Prior {
+  const mean = new Float64Array(size);
+  mean[3] = JUNCTION.share;
+  mean[7] = JUNCTION.lag_s;
+  const measured = (sign: number) =>
+    bins.every((bin) => Math.sign(bin.flow_kg_s) !== sign || bin.inletMeasured[s]);
+  const inlet = (sign: number) => (measured(sign) ? estimator.inlet_sigma_K : ASSUMED_INLET_K);
+  const flow = Math.hypot(priors.meter, priors.capacity);
+  const sigma = Float64Array.from([
+    priors.transfer,
+    priors.conductivity,
+    priors.loss,
+    JUNCTION.shareSigma,
+    inlet(1),
+    inlet(-1),
+    NUISANCE.meterSlope,
+    JUNCTION.lagSigma_s,
+    NUISANCE.wallSteel,
+    ...store.store.strings.map(() => flow),
+  ]).map((one) => Math.max(1e-6, one));
+  return { mean, sigma: sigma.subarray(0, size) };
+}
+
+/** Sigma of an inlet that the machine's model stands in for [K], as in the tracker. */
+const ASSUMED_INLET_K = 15;
+
+/** Sum of the strings' normal equations over [store parameters | flow of each string], with priors. */
+function assemble(
+  normals: readonly StringNormal[],
+  prior: Prior,
+  values: Float64Array,
+  size: number,
+): { information: Float64Array; right: Float64Array } {
+  const information = new Float64Array(size * size);
+  const right = new Float64Array(size);
+  for (let i = 0; i < size; i++) {
+    const precision = 1 / (prior.sigma[i] as number) ** 2;
+    information[i * size + i] = precision;
+    right[i] = precision * ((prior.mean[i] as number) - (values[i] as number));
+  }
+  normals.forEach((one, k) => {
+    const place = (c: number) => (c < COUNT ? c : COUNT + k);
+    for (let c = 0; c < KEPT; c++) {
+      const r = place(c);
+      right[r] = (right[r] as number) + (one.right[c] as number);
+      for (let e = 0; e < KEPT; e++) {
+        const at = r * size + place(e);
+        information[at] = (information[at] as number) + (one.information[c * KEPT + e] as number);
+      }
+    }
+  });
+  return { information, right };
+}
+
+/** The part of a step that is a string's: store parameters and its own flow. */
+function partOf(step: Float64Array, k: number): Float64Array {
+  const part = new Float64Array(KEPT);
+  part.set(step.subarray(0, COUNT));
+  part[COUNT] = step[COUNT + k] as number;
+  return part;
+}
+
+/** Takes a step, shortened where it is too long to be believed; returns the largest in sigmas. */
+function advance(
+  guess: Guess,
+  step: Float64Array,
+  normals: readonly StringNormal[],
+  data: readonly StringData[],
+  information: Float64Array,
+  size: number,
+): number {
+  let share = 1;
+  for (let i = 0; i < size; i++) {
+    const most = LARGEST[Math.min(i, COUNT)] as number;
+    share = Math.min(share, most / Math.max(1e-12, Math.abs(step[i] as number)));
+  }
+  const covariance = inverse(information, size);
+  let worst = 0;
+  for (let i = 0; i < size; i++) {
+    const sigma = Math.sqrt(covariance[i * size + i] as number);
+    worst = Math.max(worst, Math.abs(step[i] as number) / sigma);
+    guess.values[i] = (guess.values[i] as number) + share * (step[i] as number);
+  }
+  data.forEach((one, k) => {
+    const own = (normals[k] as StringNormal).own(partOf(step, k));
+    const tube = guess.strings[k] as StringState;
+    tube.flow = guess.values[COUNT + k] as number;
+    tube.transfer += share * (own[0] as number);
+    tube.conductivity += share * (own[1] as number);
+    for (let h = 0; h < one.hatSigma_K.length; h++) {
+      tube.hats[h] = (tube.hats[h] as number) + share * (own[2 + h] as number);
+    }
+  });
+  return worst;
+}
+
+function leftover(
+  data: readonly StringData[],
+  columns: readonly StringColumns[],
+  normals: readonly StringNormal[],
+  step: Float64Array,
+  bins: readonly TuneBin[],
+  s: number,
+  noise_K: number,
+  estimator: EstimatorDefinition,
+): ({ string: number; sensor: number } & SensorResidual)[] {
+  return data.flatMap((one, k) => {
+    const part = partOf(step, k);
+    const own = (normals[k] as StringNormal).own(part);
+    const full = new Float64Array(KEPT + own.length);
+    full.set(part);
+    full.set(own, KEPT);
+    const left = sensorResiduals(
+      one,
+      columns[k] as StringColumns,
+      full,
+      bins,
+      s,
+      noise_K,
+      estimator,
+    );
+    return left.flatMap((residual, sensor) =>
+      residual === null || !one.used[sensor] ? [] : [{ string: k, sensor, ...residual }],
+    );
+  });
+}
+
+const mean = (values: readonly number[]): number =>
+  values.reduce((sum, v) => sum + v, 0) / Math.max(1, values.length);
+
+function median(values: readonly number[]): number {
+  const sorted = [...values].sort((a, b) => a - b);
+  return sorted[sorted.length >> 1] ?? Number.NaN;
+}
