@@ -14,6 +14,8 @@ export const SENSOR_VERDICTS = [
   'drifting',
   'offset',
   'reversed',
+  'swapped',
+  'wrong_type',
   'outlier',
   'group_fault',
   'uncovered',

@@ -36,7 +36,7 @@ export interface UnitSnapshot {
   readonly state: UnitState;
 }
 
-const SNAPSHOT_VERSION = 3;
+const SNAPSHOT_VERSION = 4;
 const NOTHING: UnitAsk = { hours_at_W: [], profile: false };
 /** Longest run of empty scans that a gap is filled with; a longer gap takes coarser ones. */
 const TICKS_MOST = 720;

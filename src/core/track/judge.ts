@@ -1,62 +1,18 @@
-import type { SensorVerdict } from '../estimate.js';
+import { clear, isBelieved, type SensorEvidence, type SensorMemory, set } from './judgeMemory.js';
+import { followMovement, movesAsRock } from './judgeMovement.js';
+import { followUsual, usualFault } from './judgeUsual.js';
+import { judgeWiring, WIRING } from './judgeWiring.js';
 
-/** What is remembered of one thermocouple to judge it. Plain values, bounded. */
-export interface SensorMemory {
-  verdict: SensorVerdict | null;
-  since_ms: number;
-  evidence: string;
-  /** Last reading, and when it last changed [K]. */
-  last_K: number;
-  changed_ms: number;
-  /**
-   * How far the bed model alone has moved the rock beside it since then [K]: the sum of its steps,
-   * not the change of the estimate, which a frozen reading holds back.
-   */
-  moved_K: number;
-  /** What the estimate expected after the last scan [K], NaN before the first. */
-  expected_K: number;
-  /** Scans in a row outside the gate, and the innovation at the first of them [K]. */
-  outside: number;
-  firstOutside_K: number;
-  /** Scans in a row that a rejected sensor has looked sound. */
-  sound: number;
-  /** Times that the value changed since the verdict, capped at SOUND_SCANS. */
-  changes: number;
-}
-
-export function freshSensor(): SensorMemory {
-  return {
-    verdict: null,
-    since_ms: 0,
-    evidence: '',
-    last_K: Number.NaN,
-    changed_ms: 0,
-    moved_K: 0,
-    expected_K: Number.NaN,
-    outside: 0,
-    firstOutside_K: 0,
-    sound: 0,
-    changes: 0,
-  };
-}
-
-/** One sensor's reading against what the tube expects. */
-export interface SensorEvidence {
-  readonly time_ms: number;
-  /** NaN = missing. */
-  readonly value_K: number;
-  /** Other thermocouples of the store delivered in this scan. */
-  readonly othersPresent: boolean;
-  readonly predicted_K: number;
-  /** Standard deviation of the innovation [K]. */
-  readonly sigma_K: number;
-  /** Smallest change that this channel reports [K]. */
-  readonly deadband_K: number;
-  /** Range of temperatures that the plant can produce [K]. */
-  readonly range_K: readonly [number, number];
-  /** Sensors beside it deviate to the same side: the profile is off there, not the sensor. */
-  readonly supported: boolean;
-}
+export {
+  doubtBeside,
+  freshSensor,
+  isBelieved,
+  releaseFromGroup,
+  rename,
+  type SensorEvidence,
+  type SensorMemory,
+  shiftWithGroup,
+} from './judgeMemory.js';
 
 /** Scans and limits of the judgement. */
 export const GATE_SIGMAS = 4.5;
@@ -71,6 +27,13 @@ const STUCK_MIN_MOVE_K = 4;
 const SUSPECT_MOVE_K = 1.5;
 /** A reading that repeats within this is unchanged: below the resolution of usual input cards. */
 const UNCHANGED_K = 0.01;
+/** Wild readings within an hour of one another that make an outlier, and the least of them [K]. */
+const SPIKES = 3;
+const SPIKE_MS = 3600_000;
+const SPIKE_K = 5;
+/** Gas and reading agree within this, rock and gas differ by more [K]; scans in a row. */
+const IN_GAS_K = 4;
+const IN_GAS_SCANS = 5;
 
 /** `soften`: use it with its variance enlarged, since it deviates far but is borne out by others. */
 export type Judgement = 'use' | 'soften' | 'leave_out';
@@ -79,84 +42,136 @@ export type Judgement = 'use' | 'soften' | 'leave_out';
  * Judges one thermocouple in one scan: whether its reading may be used, and its verdict.
  *
  * - `open`: missing while others of the store deliver; ends with the next reading.
+ * - `reversed`: reads as far below its cold junction as the rock is above it: three scans in which
+ *   its value moved against the rock by as much, or stood mirrored by more than 40 K.
  * - `burst`: outside the range that the plant can produce.
  * - `stuck`: unchanged for 10 min or more while the bed model has moved the rock beside it by more
  *   than 4 K and six sigma of the innovation; it is left out from 1.5 K on. A value that is rightly
  *   steady is never stuck.
+ * - `uncovered`: the topmost reads as the gas that enters there and not as rock, for five scans.
  * - `offset` / `drifting`: five scans in a row outside 4.5 sigma without support from the sensors
- *   beside it; drifting where the innovation grew by a third or more since the first of them.
+ *   beside it; drifting where the innovation grew by a third or more since the first of them. Slow
+ *   drift and an offset beyond the class are told by its usual deviation (see judgeUsual).
+ * - `wrong_type`: it was off, and reads what another type's table makes of the rock's temperature.
+ * - `outlier`: three wild readings, each back within five scans, none more than an hour from the next.
  *
- * A rejected sensor returns after 20 scans in a row within 3 sigma; a stuck one must also have
- * changed its value again, since the rock passes its frozen value twice in every cycle.
+ * A rejected sensor returns after 20 scans in a row within 3 sigma and within half of what it was off
+ * by; a stuck one must also have changed its value again, since the rock passes its frozen value
+ * twice in every cycle, and a wrongly wired one must have followed the rock's movement.
  */
 export function judgeSensor(memory: SensorMemory, evidence: SensorEvidence): Judgement {
   const { value_K: value, time_ms } = evidence;
   if (!Number.isFinite(value)) {
-    if (evidence.othersPresent && memory.verdict === null) {
-      set(memory, 'open', time_ms, 'no reading while others of the store deliver');
+    if (evidence.othersPresent && isBelieved(memory)) {
+      set(memory, 'open', time_ms, 'no reading while others of the store deliver', 0);
     }
     memory.outside = 0;
     return 'leave_out';
   }
   if (memory.verdict === 'open') clear(memory);
+  const innovation = value - evidence.predicted_K;
+  followMovement(memory, evidence);
+  const miswired = judgeWiring(memory, evidence, innovation);
   const [low, high] = evidence.range_K;
   if (value < low || value > high) {
-    if (memory.verdict !== 'burst') {
+    if (memory.verdict !== 'burst' && !WIRING.includes(memory.verdict)) {
       const shown = (value - 273.15).toFixed(1);
-      set(memory, 'burst', time_ms, `reads ${shown} degC, beyond what the plant can produce`);
+      const text = `reads ${shown} degC, beyond what the plant can produce`;
+      set(memory, 'burst', time_ms, text, innovation);
     }
     memory.sound = 0;
     return 'leave_out';
   }
   followChange(memory, evidence);
-  const innovation = value - evidence.predicted_K;
-  const within = Math.abs(innovation) <= GATE_SIGMAS * evidence.sigma_K;
-  if (memory.verdict === null) return judgeSound(memory, evidence, innovation, within);
-  if (Math.abs(innovation) <= SOUND_SIGMAS * evidence.sigma_K && !isStuck(memory, evidence)) {
-    memory.sound++;
-    const moves = memory.verdict !== 'stuck' || memory.changes >= STUCK_CHANGES;
-    if (memory.sound >= SOUND_SCANS && moves) clear(memory);
-  } else memory.sound = 0;
+  if (miswired && isBelieved(memory)) return 'leave_out';
+  if (isBelieved(memory)) return judgeSound(memory, evidence, innovation);
+  if (memory.verdict === 'outlier') {
+    if (Math.abs(innovation) > GATE_SIGMAS * evidence.sigma_K) memory.spike_ms = time_ms;
+    if (time_ms - memory.spike_ms > SPIKE_MS) clear(memory);
+    return 'leave_out';
+  }
+  judgeRecovery(memory, evidence, innovation);
   return 'leave_out';
 }
 
-function judgeSound(
-  memory: SensorMemory,
-  evidence: SensorEvidence,
-  innovation: number,
-  within: boolean,
-): Judgement {
+function judgeRecovery(memory: SensorMemory, evidence: SensorEvidence, innovation: number): void {
+  const off = Math.abs(innovation);
+  const limit = memory.off_K > 0 ? memory.off_K / 2 : Number.POSITIVE_INFINITY;
+  if (off > Math.min(SOUND_SIGMAS * evidence.sigma_K, limit) || isStuck(memory, evidence)) {
+    memory.sound = 0;
+    return;
+  }
+  // Where the estimate is too uncertain to tell, nothing is learned.
+  if (SOUND_SIGMAS * evidence.sigma_K > 2 * limit) return;
+  if (WIRING.includes(memory.verdict)) {
+    if (memory.sound === 0) memory.read_K = memory.modelled_K = 0;
+    else if (!movesAsRock(memory)) {
+      memory.sound = Math.min(memory.sound + 1, SOUND_SCANS - 1);
+      return;
+    }
+  }
+  memory.sound++;
+  const moves = memory.verdict !== 'stuck' || memory.changes >= STUCK_CHANGES;
+  if (memory.sound >= SOUND_SCANS && moves) clear(memory);
+}
+
+function judgeSound(memory: SensorMemory, evidence: SensorEvidence, innovation: number): Judgement {
+  const { time_ms } = evidence;
   if (isStuck(memory, evidence)) {
     const moved = Math.abs(memory.moved_K);
-    const minutes = Math.round((evidence.time_ms - memory.changed_ms) / 60_000);
-    set(
-      memory,
-      'stuck',
-      evidence.time_ms,
-      `unchanged for ${minutes} min while the rock there moved by ${moved.toFixed(1)} K`,
-    );
+    const minutes = Math.round((time_ms - memory.changed_ms) / 60_000);
+    const text = `unchanged for ${minutes} min while the rock there moved by ${moved.toFixed(1)} K`;
+    set(memory, 'stuck', time_ms, text, 0);
     return 'leave_out';
   }
   if (Math.abs(memory.moved_K) > Math.max(SUSPECT_MOVE_K, 2 * evidence.deadband_K)) {
     return 'leave_out';
   }
-  if (within || evidence.supported) {
+  // The junction has not yet followed the gas that no longer flows, or flows anew.
+  if (time_ms < memory.unsettled_ms) return 'leave_out';
+  followUsual(memory, evidence);
+  const supported = evidence.supported || time_ms < memory.doubt_ms;
+  const fault = supported ? null : usualFault(memory, evidence);
+  if (fault !== null) {
+    set(memory, fault.verdict, time_ms, fault.evidence, fault.off_K);
+    return 'leave_out';
+  }
+  const within = Math.abs(innovation) <= GATE_SIGMAS * evidence.sigma_K;
+  if (within || supported) {
+    if (within && memory.outside > 0) countSpike(memory, evidence);
+    if (memory.verdict === 'outlier') return 'leave_out';
     memory.outside = 0;
+    memory.inGas = 0;
     return within ? 'use' : 'soften';
   }
   if (memory.outside === 0) memory.firstOutside_K = innovation;
   memory.outside++;
-  if (memory.outside >= OUTSIDE_SCANS) {
+  const gas = evidence.topGas_K;
+  const inGas =
+    Math.abs(evidence.value_K - gas) < IN_GAS_K &&
+    Math.abs(evidence.predicted_K - gas) > 2 * IN_GAS_K;
+  memory.inGas = inGas ? memory.inGas + 1 : 0;
+  if (memory.inGas >= IN_GAS_SCANS) {
+    const text = `reads ${(evidence.value_K - 273.15).toFixed(1)} degC like the gas that enters there, ${Math.abs(innovation).toFixed(1)} K from the rock`;
+    set(memory, 'uncovered', time_ms, text, innovation);
+  } else if (memory.outside >= OUTSIDE_SCANS) {
     const grown = Math.abs(innovation) > 1.33 * Math.abs(memory.firstOutside_K);
     const sigmas = Math.abs(innovation) / evidence.sigma_K;
-    set(
-      memory,
-      grown ? 'drifting' : 'offset',
-      evidence.time_ms,
-      `${innovation.toFixed(1)} K from the estimate (${sigmas.toFixed(1)} sigma) for ${memory.outside} scans`,
-    );
+    const text = `${innovation.toFixed(1)} K from the estimate (${sigmas.toFixed(1)} sigma) for ${memory.outside} scans`;
+    set(memory, grown ? 'drifting' : 'offset', time_ms, text, innovation);
   }
   return 'leave_out';
+}
+
+/** A wild reading has come back: three within an hour of one another are no chance. */
+function countSpike(memory: SensorMemory, evidence: SensorEvidence): void {
+  const { time_ms } = evidence;
+  if (Math.abs(memory.firstOutside_K) < SPIKE_K) return;
+  memory.spikes = time_ms - memory.spike_ms > SPIKE_MS ? 1 : memory.spikes + 1;
+  memory.spike_ms = time_ms;
+  if (memory.spikes < SPIKES) return;
+  const text = `${memory.spikes} wild readings that came back, the last one off by ${memory.firstOutside_K.toFixed(1)} K`;
+  set(memory, 'outlier', time_ms, text, memory.firstOutside_K);
 }
 
 function followChange(memory: SensorMemory, evidence: SensorEvidence): void {
@@ -175,29 +190,4 @@ function isStuck(memory: SensorMemory, evidence: SensorEvidence): boolean {
   if (evidence.time_ms - memory.changed_ms < STUCK_S * 1000) return false;
   const moved = Math.abs(memory.moved_K);
   return moved > Math.max(STUCK_MIN_MOVE_K, 6 * evidence.sigma_K, 2 * evidence.deadband_K);
-}
-
-function set(
-  memory: SensorMemory,
-  verdict: SensorVerdict,
-  time_ms: number,
-  evidence: string,
-): void {
-  memory.verdict = verdict;
-  memory.since_ms = time_ms;
-  memory.evidence = evidence;
-  memory.sound = 0;
-  memory.changes = 0;
-}
-
-/** Rejects a sensor for what its whole group shows; see groupFaults. */
-export function rejectWithGroup(memory: SensorMemory, time_ms: number, evidence: string): void {
-  if (memory.verdict === null) set(memory, 'group_fault', time_ms, evidence);
-}
-
-function clear(memory: SensorMemory): void {
-  memory.verdict = null;
-  memory.evidence = '';
-  memory.outside = 0;
-  memory.sound = 0;
 }

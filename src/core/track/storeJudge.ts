@@ -1,54 +1,75 @@
-import { GATE_SIGMAS, judgeSensor, rejectWithGroup, type SensorMemory } from './judge.js';
-import { type AcceptedReading, type ReadingModel, readingVariance } from './measurement.js';
+import {
+  GATE_SIGMAS,
+  isBelieved,
+  type Judgement,
+  judgeSensor,
+  type SensorEvidence,
+  type SensorMemory,
+} from './judge.js';
+import { judgeSwaps } from './judgeSwap.js';
+import { type Candidate, innovation, type JudgeWork } from './judgeWork.js';
+import type { AcceptedReading } from './measurement.js';
 import { plausibleRange } from './storeStart.js';
 import type { StoreModel, StoreState } from './storeTracker.js';
-import type { TubeModel } from './tube.js';
-
-/** A reading against its prediction, before any update of this scan. */
-export interface Candidate {
-  readonly tube: number;
-  readonly sensor: number;
-  readonly value_K: number;
-  readonly reading: ReadingModel;
-  /** P H' (a row of the tube's scratch) and the sigma of the innovation [K]. */
-  readonly v: Float64Array;
-  readonly sigma_K: number;
-}
-
-export const innovation = (c: Candidate): number => c.value_K - c.reading.value_K;
+import type { TubeDrive, TubeModel } from './tube.js';
 
 export const memoryOf = (state: StoreState, c: Candidate): SensorMemory =>
   state.sensors[c.tube]?.[c.sensor] as SensorMemory;
+
+export type Accepted = AcceptedReading & { readonly tube: number };
+
+/** Junctions see any share of the gas from none to all, evenly spread: 1/sqrt(12). */
+const SHARE_SIGMA = 0.29;
 
 /** Judges every thermocouple; returns those whose reading may be used, with their variances. */
 export function judgeAll(
   model: StoreModel,
   state: StoreState,
-  candidates: readonly Candidate[],
+  work: JudgeWork,
+  drive: TubeDrive | null,
   time_ms: number,
-): (AcceptedReading & { tube: number })[] {
+): Accepted[] {
+  const { candidates } = work;
   const range_K = plausibleRange(model);
-  const present = candidates.filter((c) => Number.isFinite(c.value_K)).length;
-  const accepted: (AcceptedReading & { tube: number })[] = [];
-  for (const c of candidates) {
-    const judgement = judgeSensor(memoryOf(state, c), {
+  let present = 0;
+  for (const c of candidates) if (Number.isFinite(c.value_K)) present++;
+  const judgements = candidates.map((c): Judgement => {
+    const tube = model.tubes[c.tube] as TubeModel;
+    const evidence: SensorEvidence = {
       time_ms,
+      dt_s: drive?.dt_s ?? 0,
       value_K: c.value_K,
       othersPresent: present > 0,
       predicted_K: c.reading.value_K,
       sigma_K: c.sigma_K,
+      rock_K: c.rock_K,
+      rockSigma_K: c.rockSigma_K,
+      placeSigma_K:
+        Math.hypot(tube.estimator.position_sigma_m, SHARE_SIGMA * memoryOf(state, c).reach_m) *
+        Math.abs(c.reading.slope_K_m),
+      offsetSigma_K: tube.estimator.offset_sigma_K,
+      groupSigma_K: tube.estimator.group_offset_sigma_K,
       deadband_K: model.deadbands_K[c.tube]?.[c.sensor] ?? 0,
       range_K,
-      supported: isSupported(model, state, candidates, c),
-    });
-    if (judgement === 'leave_out') continue;
+      supported: isSupported(state, work, c),
+      movesAlike: movesAlike(state, work, c),
+      topGas_K: topGas(model, state, c, drive),
+    };
+    return judgeSensor(memoryOf(state, c), evidence);
+  });
+  const suspects = new Uint8Array(candidates.length);
+  judgeSwaps(work, state.sensors.flat(), time_ms, suspects);
+  const accepted: Accepted[] = [];
+  candidates.forEach((c, i) => {
+    const judgement = judgements[i] as Judgement;
+    if (judgement === 'leave_out' || suspects[i] === 1) return;
     const innovation_K = innovation(c);
-    const tube = model.tubes[c.tube] as TubeModel;
-    let variance_K2 = readingVariance(tube, c.reading);
+    let { variance_K2 } = c;
     // Enlarged until the innovation is three of its sigmas: it pulls, but not by its full length.
     if (judgement === 'soften') variance_K2 += innovation_K ** 2 / 9 - c.sigma_K ** 2;
-    accepted.push({ ...c, innovation_K, variance_K2 });
-  }
+    const { tube, sensor, reading, v } = c;
+    accepted.push({ tube, sensor, reading, v, innovation_K, variance_K2 });
+  });
   return accepted;
 }
 
@@ -59,61 +80,53 @@ const SUPPORT_SIGMAS = 2;
  * True where a sensor beside it on its string, or most of those at its height on other strings,
  * deviate to the same side: then the profile is off there, not the sensor.
  */
-function isSupported(
-  model: StoreModel,
-  state: StoreState,
-  candidates: readonly Candidate[],
-  c: Candidate,
-): boolean {
+function isSupported(state: StoreState, work: JudgeWork, c: Candidate): boolean {
   const z = innovation(c) / c.sigma_K;
   if (!(Math.abs(z) > GATE_SIGMAS)) return false;
-  const agrees = (other: Candidate): boolean =>
-    memoryOf(state, other).verdict === null &&
-    (innovation(other) / other.sigma_K) * Math.sign(z) > SUPPORT_SIGMAS;
-  const beside = candidates.filter((o) => o.tube === c.tube && Math.abs(o.sensor - c.sensor) === 1);
-  if (beside.some(agrees)) return true;
-  const place = (o: Candidate): number =>
-    model.tubes[o.tube]?.string.thermocouples[o.sensor]?.position_m as number;
-  const reach = model.store.bed.length_m / 40;
-  const level = candidates.filter(
-    (o) =>
-      o.tube !== c.tube && Number.isFinite(o.value_K) && Math.abs(place(o) - place(c)) <= reach,
-  );
+  const agrees = (i: number): boolean => {
+    const other = work.candidates[i] as Candidate;
+    return (
+      isBelieved(memoryOf(state, other)) &&
+      (innovation(other) / other.sigma_K) * Math.sign(z) > SUPPORT_SIGMAS
+    );
+  };
+  if (c.beside.some(agrees)) return true;
+  const level = c.level.filter((i) => Number.isFinite((work.candidates[i] as Candidate).value_K));
   return level.length > 0 && level.filter(agrees).length * 2 > level.length;
 }
 
-/** A group is at fault where this share of it deviates to one side and the rest of the store does not. */
-const GROUP_SHARE = 0.8;
-const GROUP_SIGMAS = 3;
-const GROUP_LEAST = 4;
+/** Movements against the rock below this are no concern [K]; alike is by half as much to the same side. */
+const MOVED_LEAST_K = 1;
 
-/**
- * A card or cold junction that fails moves all its thermocouples by about the same: first the common
- * cause is judged, before each sensor by itself.
- */
-export function rejectFaultyGroups(
+/** True where a believed sensor beside it, or at its height, has left its usual deviation likewise. */
+function movesAlike(state: StoreState, work: JudgeWork, c: Candidate): boolean {
+  const own = memoryOf(state, c);
+  const moved = own.recent_K - own.usual_K;
+  if (!(Math.abs(moved) > MOVED_LEAST_K)) return false;
+  const alike = (i: number): boolean => {
+    const other = memoryOf(state, work.candidates[i] as Candidate);
+    const likewise = (other.recent_K - other.usual_K) * Math.sign(moved);
+    return isBelieved(other) && likewise > Math.max(MOVED_LEAST_K, Math.abs(moved) / 2);
+  };
+  return c.beside.some(alike) || c.level.some(alike);
+}
+
+/** Gas that enters at the top, for the topmost sensor of a string and those below uncovered ones [K]. */
+function topGas(
   model: StoreModel,
   state: StoreState,
-  sound: readonly Candidate[],
-  time_ms: number,
-): void {
-  const groupOf = (c: Candidate): string | null =>
-    model.tubes[c.tube]?.string.thermocouples[c.sensor]?.group ?? null;
-  const names = new Set(sound.map(groupOf));
-  if (names.size < 2) return;
-  for (const name of names) {
-    if (name === null) continue;
-    const own = sound.filter((c) => groupOf(c) === name);
-    if (own.length < GROUP_LEAST) continue;
-    const z = own.map((c) => innovation(c) / c.sigma_K);
-    const up = z.filter((v) => v > GROUP_SIGMAS).length;
-    const down = z.filter((v) => v < -GROUP_SIGMAS).length;
-    if (Math.max(up, down) < GROUP_SHARE * own.length) continue;
-    const others = sound.filter((c) => groupOf(c) !== name);
-    const off = others.filter((c) => Math.abs(innovation(c)) > GROUP_SIGMAS * c.sigma_K).length;
-    if (others.length === 0 || off > (1 - GROUP_SHARE) * others.length) continue;
-    const mean = own.reduce((sum, c) => sum + innovation(c), 0) / own.length;
-    const evidence = `${Math.max(up, down)} of ${own.length} thermocouples of group ${name} moved together by ${mean.toFixed(1)} K, the others did not`;
-    for (const c of own) rejectWithGroup(memoryOf(state, c), time_ms, evidence);
+  c: Candidate,
+  drive: TubeDrive | null,
+): number {
+  if (drive === null || drive.massFlux_kg_m2s === 0 || drive.inletSigma_K > 0) return Number.NaN;
+  const chargesFromTop = model.store.charge_inlet_at === 'top';
+  if (drive.massFlux_kg_m2s > 0 !== chargesFromTop) return Number.NaN;
+  const { thermocouples } = (model.tubes[c.tube] as TubeModel).string;
+  const place = thermocouples[c.sensor]?.position_m as number;
+  for (let i = 0; i < thermocouples.length; i++) {
+    const above = thermocouples[i]?.position_m as number;
+    if (chargesFromTop ? above >= place : above <= place) continue;
+    if (state.sensors[c.tube]?.[i]?.verdict !== 'uncovered') return Number.NaN;
   }
+  return drive.inlet_K;
 }

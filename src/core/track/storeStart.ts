@@ -80,13 +80,21 @@ export function rememberStart(
       const { reference_hot_K: hot, reference_cold_K: cold } = model.store;
       judgeSensor(state.sensors[k]?.[s] as SensorMemory, {
         time_ms,
+        dt_s: 0,
         value_K: values[model.channels[k]?.[s] as number] as number,
         othersPresent: present,
         predicted_K: (hot + cold) / 2,
         sigma_K: (hot - cold) / 2,
+        rock_K: (hot + cold) / 2,
+        rockSigma_K: Number.POSITIVE_INFINITY,
+        placeSigma_K: 0,
+        offsetSigma_K: 0,
+        groupSigma_K: 0,
         deadband_K: 0,
         range_K: plausibleRange(model),
         supported: false,
+        movesAlike: false,
+        topGas_K: Number.NaN,
       });
     }
   });

@@ -141,5 +141,5 @@ export function stepStore(
     restart(model, state, values, REACQUIRE_INFLATION);
     return 'reacquired';
   }
-  return updateStore(model, state, values, time_ms);
+  return updateStore(model, state, values, time_ms, drive);
 }

@@ -1,18 +1,16 @@
-import { GATE_SIGMAS } from './judge.js';
-import {
-  applyReadings,
-  predictReading,
-  projectReading,
-  type ReadingModel,
-  readingVariance,
-} from './measurement.js';
+import type { SensorVerdict } from '../estimate.js';
+import { doubtBeside, GATE_SIGMAS, isBelieved, type SensorMemory } from './judge.js';
+import { judgeGroups } from './judgeGroup.js';
+import { forgetSensor } from './judgeUndo.js';
 import {
   type Candidate,
   innovation,
-  judgeAll,
-  memoryOf,
-  rejectFaultyGroups,
-} from './storeJudge.js';
+  type JudgeWork,
+  judgeWork,
+  predictTubeReadings,
+} from './judgeWork.js';
+import { applyReadings, predictReading } from './measurement.js';
+import { judgeAll, memoryOf } from './storeJudge.js';
 import { plausibleRange, restart } from './storeStart.js';
 import {
   REACQUIRE_INFLATION,
@@ -20,7 +18,13 @@ import {
   type StoreState,
   type StoreStep,
 } from './storeTracker.js';
-import { type TubeModel, type TubeScratch, type TubeState, tubeTemperatures } from './tube.js';
+import {
+  type TubeDrive,
+  type TubeModel,
+  type TubeScratch,
+  type TubeState,
+  tubeTemperatures,
+} from './tube.js';
 import { followCorrection } from './wallZone.js';
 
 /** Most readings outside the gate: a common cause, not the sensors. */
@@ -35,14 +39,22 @@ export function updateStore(
   state: StoreState,
   values: Float64Array,
   time_ms: number,
+  drive: TubeDrive | null,
 ): StoreStep {
-  const candidates = predictAll(model, state, values);
+  const work = predictAll(model, state, values, time_ms, drive?.dt_s ?? 0);
+  const { candidates } = work;
   const [low, high] = plausibleRange(model);
-  const within = (c: Candidate): boolean => c.value_K >= low && c.value_K <= high;
+  const usable = (c: Candidate): boolean => {
+    const memory = memoryOf(state, c);
+    return (
+      c.value_K >= low && c.value_K <= high && isBelieved(memory) && time_ms >= memory.unsettled_ms
+    );
+  };
   // First the common cause (a card, a cold junction), else half a store's fault passes for a lost estimate.
-  const believed = candidates.filter((c) => within(c) && memoryOf(state, c).verdict === null);
-  rejectFaultyGroups(model, state, believed, time_ms);
-  const sound = believed.filter((c) => memoryOf(state, c).verdict === null);
+  if (judgeGroups(model, state, work, usable, time_ms)) {
+    for (let k = 0; k < model.tubes.length; k++) predictTubeReadings(model, state, work, k);
+  }
+  const sound = candidates.filter(usable);
   const outside = sound.filter((c) => Math.abs(innovation(c)) > GATE_SIGMAS * c.sigma_K);
   const least = Math.max(2, Math.min(MISS_LEAST, sound.length));
   if (outside.length >= least && outside.length > MISS_SHARE * sound.length) {
@@ -53,41 +65,59 @@ export function updateStore(
     return 'reacquired';
   }
   state.missed = 0;
-  const accepted = judgeAll(model, state, candidates, time_ms);
+  const before = candidates.map((c) => memoryOf(state, c).verdict);
+  const accepted = judgeAll(model, state, work, drive, time_ms);
   model.tubes.forEach((tube, k) => {
-    followSurprise(
-      state.tubes[k] as TubeState,
-      sound.filter((c) => c.tube === k && memoryOf(state, c).verdict === null),
-    );
     const tubeState = state.tubes[k] as TubeState;
+    followSurprise(
+      tubeState,
+      sound.filter((c) => c.tube === k && isBelieved(memoryOf(state, c))),
+    );
     const beside = model.wall?.tube === k ? state.wall : null;
-    const before = beside && tubeTemperatures(tube, tubeState, new Float64Array(tube.layout.cells));
+    const old = beside && tubeTemperatures(tube, tubeState, new Float64Array(tube.layout.cells));
     applyReadings(
       tube,
       tubeState,
-      accepted.filter((c) => c.tube === k),
+      accepted.filter((a) => a.tube === k),
       (model.scratch[k] as TubeScratch).temperature,
     );
-    if (beside === null || before === null) return;
-    const after = tubeTemperatures(tube, tubeState, new Float64Array(tube.layout.cells));
-    followCorrection(model.tables, beside, before, after);
+    candidates.forEach((c, i) => {
+      const memory = memoryOf(state, c);
+      if (c.tube !== k || memory.verdict === before[i] || !BENDS.includes(memory.verdict)) return;
+      forgetSensor(tube, tubeState, c.sensor, memory.off_K);
+      if (memory.verdict === 'drifting') return;
+      for (const other of candidates) {
+        const near = other.tube === k && Math.abs(other.sensor - c.sensor) <= BENDS_PLACES;
+        if (near && other !== c) doubtBeside(memoryOf(state, other), time_ms);
+      }
+    });
+    if (beside === null || old === null) return;
+    const now = tubeTemperatures(tube, tubeState, new Float64Array(tube.layout.cells));
+    followCorrection(model.tables, beside, old, now);
   });
-  rememberExpected(model, state, candidates);
+  rememberExpected(model, state, work);
   state.used = accepted.length;
   return state.used > 0 ? 'updated' : 'predicted';
 }
 
+/** Verdicts on sensors that were used for a while after they had gone wrong. */
+const BENDS: readonly (SensorVerdict | null)[] = [
+  'stuck',
+  'drifting',
+  'reversed',
+  'swapped',
+  'wrong_type',
+];
+
+/** Neighbours to either side that it may have taken along. */
+const BENDS_PLACES = 2;
+
 /** What the estimate expects of each thermocouple after the update, for the next scan's judgement. */
-function rememberExpected(
-  model: StoreModel,
-  state: StoreState,
-  candidates: readonly Candidate[],
-): void {
-  const reading: ReadingModel = { value_K: 0, cell: 0, weight: 0, slope_K_m: 0, lag_m: 0 };
-  for (const c of candidates) {
+function rememberExpected(model: StoreModel, state: StoreState, work: JudgeWork): void {
+  for (const c of work.candidates) {
     const tube = model.tubes[c.tube] as TubeModel;
-    predictReading(tube, state.tubes[c.tube] as TubeState, c.sensor, reading);
-    memoryOf(state, c).expected_K = reading.value_K;
+    predictReading(tube, state.tubes[c.tube] as TubeState, c.sensor, work.reading);
+    memoryOf(state, c).expected_K = work.reading.value_K;
   }
 }
 
@@ -103,19 +133,41 @@ function followSurprise(tube: TubeState, sound: readonly Candidate[]): void {
   tube.surprise += (sum / sound.length - tube.surprise) / SURPRISE_SCANS;
 }
 
-/** Prediction, P H' and innovation sigma of every thermocouple, missing ones included. */
-function predictAll(model: StoreModel, state: StoreState, values: Float64Array): Candidate[] {
-  return model.tubes.flatMap((tube, k) => {
-    const tubeState = state.tubes[k] as TubeState;
-    const scratch = model.scratch[k] as TubeScratch;
-    return tube.string.thermocouples.map((_, sensor): Candidate => {
-      const reading: ReadingModel = { value_K: 0, cell: 0, weight: 0, slope_K_m: 0, lag_m: 0 };
-      predictReading(tube, tubeState, sensor, reading);
-      const v = scratch.projections[sensor] as Float64Array;
-      const projected = projectReading(tube, tubeState, sensor, reading, v);
-      const sigma_K = Math.sqrt(projected + readingVariance(tube, reading));
-      const value_K = values[model.channels[k]?.[sensor] as number] as number;
-      return { tube: k, sensor, value_K, reading, v, sigma_K };
-    });
-  });
+/** Predictions of every thermocouple, missing ones included, with its reading. */
+function predictAll(
+  model: StoreModel,
+  state: StoreState,
+  values: Float64Array,
+  time_ms: number,
+  dt_s: number,
+): JudgeWork {
+  const work = judgeWork(model);
+  for (let k = 0; k < model.tubes.length; k++) predictTubeReadings(model, state, work, k);
+  for (const c of work.candidates) {
+    const memory = memoryOf(state, c);
+    c.value_K = (values[model.channels[c.tube]?.[c.sensor] as number] as number) - memory.shift_K;
+    followLag(memory, c, time_ms, dt_s);
+  }
+  return work;
+}
+
+/** Three times the longest lag of a thermowell, 180 s: 95 % of a step are over. */
+const SETTLE_MS = 3 * 180_000;
+/** Junctions see anything from none to all of the gas: half of it from the mean. */
+const SHARE_REACH = 0.5;
+
+/** How long a place keeps what the gas has put into it: half a cycle [s]. */
+const REACH_S = 6 * 3600;
+
+/**
+ * Where the lag between gas and rock jumps, as when the flow stops or turns, a junction's reading
+ * jumps by its own share of it, and late by its thermowell. Until then a reading that may yet
+ * move by more than two sigma of its noise says nothing about the rock.
+ */
+function followLag(memory: SensorMemory, c: Candidate, time_ms: number, dt_s: number): void {
+  const { lag_m, slope_K_m } = c.reading;
+  const jump = SHARE_REACH * Math.abs((lag_m - memory.lag_m) * slope_K_m);
+  if (jump * jump > 4 * c.variance_K2) memory.unsettled_ms = time_ms + SETTLE_MS;
+  memory.lag_m = lag_m;
+  memory.reach_m = Math.max(Math.abs(lag_m), memory.reach_m * Math.exp(-dt_s / REACH_S));
 }

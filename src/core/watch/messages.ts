@@ -11,7 +11,9 @@ const VERDICT_WORDS: Readonly<Record<SensorVerdict, string>> = {
   drifting: 'drifts away from its neighbours',
   offset: 'reads off by a constant amount',
   reversed: 'reads mirrored, as with reversed polarity',
-  outlier: 'does not fit its neighbours',
+  swapped: 'reads what another one should',
+  wrong_type: 'reads as by the table of another type',
+  outlier: 'reads wildly now and then',
   group_fault: 'is off together with the others of its group',
   uncovered: 'seems to sit in gas, no longer in the bed',
 };
@@ -23,7 +25,9 @@ const VERDICT_LOOK: Readonly<Record<SensorVerdict, string>> = {
   drifting: 'the thermocouple itself at the next calibration',
   offset: 'its cold junction and extension cable',
   reversed: 'its two wires',
-  outlier: 'its trend beside its neighbours',
+  swapped: 'its terminals and those of the other one',
+  wrong_type: 'the type set for its channel, and its extension cable',
+  outlier: 'loose terminals, shielding and earthing',
   group_fault: 'the card, cold junction or cable that the group shares',
   uncovered: 'the level of the bed at the top',
 };
@@ -52,10 +56,14 @@ export function spreadReturned(store: string, ratio: number, limit: number): str
 }
 
 export function sensorRaised(store: string, sensor: RejectedSensor): string {
+  const what =
+    sensor.verdict === 'group_fault'
+      ? `What the readings of the group have in common is not believed since ${sensor.since}; their ` +
+        'differences are used on.'
+      : `Its readings are left out since ${sensor.since}; the estimate goes on with a larger sigma there.`;
   return (
     `Thermocouple ${sensor.id} in store ${store} ${VERDICT_WORDS[sensor.verdict]} ` +
-    `(${sensor.verdict}${sensor.evidence === '' ? '' : `: ${sensor.evidence}`}). Its readings are left out ` +
-    `since ${sensor.since}; the estimate goes on with a larger sigma there. Look at ` +
+    `(${sensor.verdict}${sensor.evidence === '' ? '' : `: ${sensor.evidence}`}). ${what} Look at ` +
     `${VERDICT_LOOK[sensor.verdict]}.`
   );
 }

@@ -3,9 +3,10 @@ import {
   freshSensor,
   type Judgement,
   judgeSensor,
-  rejectWithGroup,
+  releaseFromGroup,
   type SensorEvidence,
   type SensorMemory,
+  shiftWithGroup,
 } from '../../../src/core/track/judge.js';
 
 const SCAN_S = 60;
@@ -20,13 +21,22 @@ function watched(defaults: Partial<SensorEvidence> = {}) {
     n++;
     const evidence: SensorEvidence = {
       time_ms: n * SCAN_S * 1000,
+      dt_s: SCAN_S,
       value_K,
       othersPresent: true,
       predicted_K: 500,
       sigma_K: SIGMA,
+      rock_K: over.predicted_K ?? defaults.predicted_K ?? 500,
+      // Nothing but the innovation is looked at, unless a test asks for more.
+      rockSigma_K: Number.POSITIVE_INFINITY,
+      placeSigma_K: 0,
+      offsetSigma_K: 1,
+      groupSigma_K: 0.5,
       deadband_K: 0,
       range_K: [200, 900],
       supported: false,
+      movesAlike: false,
+      topGas_K: Number.NaN,
       ...defaults,
       ...over,
     };
@@ -52,7 +62,7 @@ describe('a sound sensor', () => {
 
   it('is left out, not rejected, for up to four scans in a row outside the gate', () => {
     const { memory, scan, sound } = watched();
-    for (let round = 0; round < 5; round++) {
+    for (let round = 0; round < 2; round++) {
       for (let k = 0; k < 4; k++) expect(scan(510 + 0.1 * k)).toBe('leave_out');
       expect(sound()).toBe('use');
     }
@@ -236,23 +246,31 @@ describe('stuck', () => {
 });
 
 describe('group_fault', () => {
-  it('is set from outside, and leaves a verdict of the sensor`s own alone', () => {
-    const { memory, scan } = watched();
-    rejectWithGroup(memory, 1000, 'the whole card moved');
-    expect(memory).toMatchObject({ verdict: 'group_fault', since_ms: 1000 });
+  it('marks a sensor that is used on, and leaves a verdict of its own alone', () => {
+    const { memory, sound } = watched();
+    shiftWithGroup(memory, 1000, 'the whole card moved', 5);
+    expect(memory).toMatchObject({ verdict: 'group_fault', since_ms: 1000, shift_K: 5 });
+    // The caller takes the step off the reading.
+    expect(sound()).toBe('use');
+    expect(memory.verdict).toBe('group_fault');
     const other = watched();
     other.scan(950);
-    rejectWithGroup(other.memory, 1000, 'the whole card moved');
-    expect(other.memory.verdict).toBe('burst');
-    expect(scan(530)).toBe('leave_out');
+    shiftWithGroup(other.memory, 1000, 'the whole card moved', 5);
+    expect(other.memory).toMatchObject({ verdict: 'burst', shift_K: 5 });
   });
 
-  it('is believed again after twenty scans in a row within three sigma', () => {
-    const { memory, sound } = watched();
-    rejectWithGroup(memory, 0, 'the whole card moved');
-    for (let k = 0; k < 19; k++) expect(sound()).toBe('leave_out');
-    sound();
-    expect(memory.verdict).toBeNull();
+  it('gives way to what the sensor shows itself', () => {
+    const { memory, scan } = watched();
+    shiftWithGroup(memory, 0, 'the whole card moved', 5);
+    for (let k = 0; k < 5; k++) scan(520);
+    expect(memory.verdict).toBe('offset');
+  });
+
+  it('ends with the step of its group', () => {
+    const { memory } = watched();
+    shiftWithGroup(memory, 0, 'the whole card moved', 5);
+    releaseFromGroup(memory);
+    expect(memory).toMatchObject({ verdict: null, shift_K: 0 });
   });
 });
 
