@@ -41,6 +41,7 @@ export function describe(model: UnitModel, state: UnitState, taken: Taken, ask: 
       state,
       scan,
       Math.min(...taken.stores.map((store) => store.energy.soc)),
+      taken.conditions,
       taken.modeChanged,
     ),
     stores,

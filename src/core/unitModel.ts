@@ -5,6 +5,7 @@ import { type ChannelMap, mapChannels } from './track/conditions.js';
 import { plausibleRanges } from './track/plausible.js';
 import { type StoreModel, startStore, storeModel } from './track/storeTracker.js';
 import { setTubeTemperatures, type TubeState } from './track/tube.js';
+import { resetWall } from './track/wallZone.js';
 
 /** What is built once from a unit's definition: property tables, machine, channel indices. */
 export interface UnitModel {
@@ -76,6 +77,9 @@ function hoursWhenFull(
       const profile = new Float64Array(tube.layout.cells).fill(full);
       setTubeTemperatures(tube, state.tubes[k] as TubeState, profile);
     });
+    if (model.wall !== null && state.wall !== null) {
+      resetWall(model.tables, state.wall, state.tubes[model.wall.tube] as TubeState);
+    }
     return state;
   });
   const input = {

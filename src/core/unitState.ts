@@ -1,5 +1,6 @@
 import type { Direction, Mode } from './definitions.js';
 import type { MachineFactor } from './dispatch/machineFactor.js';
+import type { ChargeState } from './dispatch/unitHours.js';
 import type { ConditionsState } from './track/conditions.js';
 import type { StoreState } from './track/storeTracker.js';
 import type { StoreViews } from './track/storeViews.js';
@@ -18,8 +19,8 @@ export interface UnitState {
   /** Source time of the last scan with any thermocouple reading. */
   seen_ms: number | null;
   mode: Mode;
-  /** Last state of charge by rollout, when, and the least store state of charge then. */
-  charge: { value: number; time_ms: number; least: number } | null;
+  /** Of the unit's state of charge, null before the first rollout. */
+  charge: ChargeState | null;
   readonly unknownTravel_m: number[];
   /** Of the last scan: ambient, and the gas leaving each store while discharging, NaN = not measured [K]. */
   ambient_K: number;

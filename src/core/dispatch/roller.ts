@@ -2,15 +2,16 @@ import { type BedWork, createBedWork } from '../bed/kernel.js';
 import { enthalpyAt, temperatureAt } from '../bed/tables.js';
 import { cellCentres } from '../track/storeEstimate.js';
 import type { StoreModel, StoreState } from '../track/storeTracker.js';
-import { streamsOf } from '../track/streams.js';
+import { type Stream, streamsOf } from '../track/streams.js';
 import type { TubeModel } from '../track/tube.js';
-import { meanFlowFactor } from './calibration.js';
 import type { HoursInput } from './hours.js';
 import { machineSpread, partLoadFactor } from './machineSpread.js';
 import { refined } from './refine.js';
 import { type RolloutInput, type RolloutResult, type RolloutStore, rollOut } from './rollout.js';
 
 const STEP_S = 300;
+/** On half cells, such that at 60 % of rated power a step is still taken in one piece. */
+const FINE_STEP_S = 240;
 const MOST_RATED = 4;
 /** Smooth bumps per store along which the sensitivity to the profile is taken. */
 export const BUMPS = 8;
@@ -28,7 +29,10 @@ export interface Perturbation {
 export interface Roller {
   /** Longest time that is rolled out [s]. */
   readonly most_s: number;
-  /** On the estimate's own cells: two rollouts differ in nothing but what is perturbed. */
+  /**
+   * For gradients: on the estimate's own cells and without layers at the wall, whose part the tube
+   * beside them takes; two rollouts differ in nothing but what is perturbed.
+   */
   roll(change?: Perturbation): RolloutResult;
   /** On cells of half the length: see `refined`. */
   fine(change?: Perturbation): RolloutResult;
@@ -46,55 +50,81 @@ export function createRoller(input: HoursInput, power_W: number): Roller {
   const works = worksOf(1);
   const most_s =
     MOST_RATED * input.unit.rated_hours * 3600 * Math.max(1, input.unit.rated_power_W / power_W);
-  const stores = input.models.map((model, s) =>
-    rolloutStore(
-      model,
-      input.states[s] as StoreState,
-      input.plenum_K[s] as number,
-      input.calibration?.mean[s] ?? null,
-    ),
-  );
+  const storesOf = (streams: (model: StoreModel, state: StoreState) => Stream[]) =>
+    input.models.map((model, s) =>
+      rolloutStore(
+        model,
+        streams(model, input.states[s] as StoreState),
+        input.plenum_K[s] as number,
+        input.calibration?.mean[s] ?? null,
+      ),
+    );
+  const bare = storesOf(tubesAlone);
+  const whole = storesOf(streamsOf);
   const spread = machineSpread(input.unit);
   const log = input.calibration?.mean[input.models.length] ?? 0;
-  const common: Omit<RolloutInput, 'stores' | 'workFactor'> = {
+  const common: Omit<RolloutInput, 'stores' | 'workFactor' | 'step_s'> = {
     unit: input.unit,
     machine: input.machine,
     partLoad: (flow_kg_s) => partLoadFactor(spread, 'discharge', flow_kg_s),
     power_W,
     ambient_K: input.ambient_K,
-    step_s: STEP_S,
     most_s,
   };
-  const rollWith = (change: Perturbation, parts: number, works: readonly BedWork[][]) => {
-    const changed = stores.map((store, s) => {
-      const own =
-        s === change.store ? perturb(input.models[s] as StoreModel, store, change) : store;
-      return parts === 1 ? own : refined(own);
-    });
-    const workFactor = Math.exp(log + (change.work ?? 0));
-    return rollOut({ ...common, stores: changed, workFactor }, works);
-  };
+  const changed = (stores: readonly RolloutStore[], change: Perturbation): RolloutStore[] =>
+    stores.map((store, s) =>
+      s === change.store ? perturb(input.models[s] as StoreModel, store, change) : store,
+    );
+  const workFactor = (change: Perturbation): number => Math.exp(log + (change.work ?? 0));
   const fineWorks = worksOf(2);
   return {
     most_s,
-    roll: (change = {}) => rollWith(change, 1, works),
-    fine: (change = {}) => rollWith(change, 2, fineWorks),
+    roll: (change = {}) =>
+      rollOut(
+        {
+          ...common,
+          step_s: STEP_S,
+          stores: changed(bare, change),
+          workFactor: workFactor(change),
+        },
+        works,
+      ),
+    fine: (change = {}) =>
+      rollOut(
+        {
+          ...common,
+          step_s: FINE_STEP_S,
+          stores: changed(whole, change).map(refined),
+          workFactor: workFactor(change),
+        },
+        fineWorks,
+      ),
   };
 }
 
-/** @param logFlow ln of the store's mean flow factor where more is known than the tubes tell */
+/** Streams of the tubes alone: the one beside the layers at the wall takes their share. */
+function tubesAlone(model: StoreModel, state: StoreState): Stream[] {
+  return streamsOf(model, state)
+    .slice(0, model.tubes.length)
+    .map((stream, k) =>
+      model.wall?.tube === k ? { ...stream, share: stream.share + model.wall.share } : stream,
+    );
+}
+
+/** @param logFlow ln of the store's mean flow factor where more is known than the streams tell */
 function rolloutStore(
   model: StoreModel,
-  state: StoreState,
+  streams: readonly Stream[],
   plenum_K: number,
   logFlow: number | null,
 ): RolloutStore {
-  const own = logFlow === null ? 1 : Math.exp(logFlow) / meanFlowFactor(model, state);
+  const mean = streams.reduce((sum, s) => sum + s.share * s.flowFactor, 0);
+  const own = logFlow === null ? 1 : Math.exp(logFlow) / mean;
   return {
     store: model.store,
     tables: model.tables,
     plenum_K,
-    tubes: streamsOf(model, state).map(({ share, ...stream }) => ({
+    tubes: streams.map(({ share, ...stream }) => ({
       ...stream,
       flowFactor: stream.flowFactor * own,
       area_share: share,

@@ -57,10 +57,24 @@ export function hoursInput(model: UnitModel, state: UnitState, power_W: number):
   };
 }
 
+/** State of charge by the last rollout, and what has changed since. */
+export interface ChargeState {
+  /** By rollout, when, and the least state of charge of a store then. */
+  readonly value: number;
+  readonly time_ms: number;
+  readonly least: number;
+  /** What was shown just before less that value: it fades, so that no rollout makes a step. */
+  readonly step: number;
+  /** Delivered since, as a share of the rated energy; time of the last scan. */
+  given: number;
+  seen_ms: number;
+}
+
 /**
- * Dispatchable over rated energy at rated power. Rolled out every ten minutes and on a change of
- * mode; between, it moves with the store that holds less, by what a
- * full unit delivers.
+ * Dispatchable over rated energy at rated power. Rolled out every ten minutes, on a change of mode
+ * and on a jump of a store. Between, a discharge takes from it what it delivers, with the auxiliaries,
+ * over what rated power takes; otherwise it moves with the store that holds less, by what a full unit
+ * delivers. What a rollout of the ten minutes says otherwise comes in over the next ten.
  *
  * @param least state of charge of the store that holds less
  */
@@ -69,22 +83,44 @@ export function stateOfCharge(
   state: UnitState,
   scan: Scan,
   least: number,
+  conditions: Conditions,
   modeChanged: boolean,
 ): number {
   const { unit } = model;
   const last = state.charge;
-  const due =
-    last === null ||
-    modeChanged ||
-    scan.time_ms - last.time_ms >= CHARGE_EVERY_S * 1000 ||
-    Math.abs(least - last.least) > CHARGE_JUMP;
-  if (due) {
-    const input = hoursInput(model, state, unit.rated_power_W);
-    const hours = centralHours(input, unit.rated_power_W).hours;
-    state.charge = { value: hours / unit.rated_hours, time_ms: scan.time_ms, least };
-    return state.charge.value;
+  const shown = last === null ? 0 : shownCharge(model, last, scan.time_ms, least, conditions);
+  const jump = last === null || modeChanged || Math.abs(least - last.least) > CHARGE_JUMP;
+  if (!jump && scan.time_ms - last.time_ms < CHARGE_EVERY_S * 1000) return shown;
+  const input = hoursInput(model, state, unit.rated_power_W);
+  const value = centralHours(input, unit.rated_power_W).hours / unit.rated_hours;
+  const time_ms = scan.time_ms;
+  const step = jump ? 0 : shown - value;
+  state.charge = { value, time_ms, least, step, given: 0, seen_ms: time_ms };
+  return value + step;
+}
+
+/** What is shown between rollouts; counts what was delivered. */
+function shownCharge(
+  model: UnitModel,
+  charge: ChargeState,
+  time_ms: number,
+  least: number,
+  conditions: Conditions,
+): number {
+  const { unit, machine } = model;
+  const left = Math.max(0, 1 - (time_ms - charge.time_ms) / (CHARGE_EVERY_S * 1000));
+  const start = charge.value + charge.step * left;
+  const delivered = Math.abs(conditions.power_W) + machine.auxiliary_running_W;
+  if (conditions.mode === 'discharge' && Number.isFinite(delivered)) {
+    const share = delivered / (unit.rated_power_W + machine.auxiliary_running_W);
+    const hours = (time_ms - charge.seen_ms) / 3.6e6;
+    charge.given += (share * hours) / unit.rated_hours;
+    charge.seen_ms = time_ms;
+    return Math.max(0, start - charge.given);
   }
-  return Math.max(0, last.value + (model.fullHours / unit.rated_hours) * (least - last.least));
+  charge.seen_ms = time_ms;
+  const perCharge = model.fullHours / unit.rated_hours;
+  return Math.max(0, start + perCharge * (least - charge.least));
 }
 
 /** Hours and energy at given powers [W] from the present state. */

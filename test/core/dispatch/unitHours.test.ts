@@ -62,12 +62,49 @@ describe('the state of charge of a unit', () => {
       const { state_of_charge } = advance(unit, state, scan, NONE).estimate;
       if (state.charge !== before) {
         rolled.push(n);
-        expect(state_of_charge).toBe(state.charge?.value);
+        const { value, step } = state.charge as NonNullable<UnitState['charge']>;
+        expect(state_of_charge).toBe(value + step);
+        // Only those of the ten minutes come in slowly: a change of mode and a jump count at once.
+        if (n !== 10 && n !== 25) expect(step).toBe(0);
       } else expect(state_of_charge).not.toBe(before?.value);
     }
     // At the start, after ten minutes, when it stops, ten minutes on, and when the estimate that is
     // lost at scan 32 has been drawn anew.
     expect(rolled).toEqual([0, 10, 15, 25, 34]);
+  });
+});
+
+describe('the state of charge between rollouts', () => {
+  it('makes no step when a rollout of the ten minutes says otherwise', () => {
+    const { soc } = charges(
+      45,
+      (n) => ({ hot: 0.4 + 0.003 * n, cold: 0.4 + 0.003 * n }),
+      () => 1,
+    );
+    // Once settled, every minute brings about as much as the one before: within half of it.
+    const steps = soc.slice(5).map((value, i) => value - (soc[i + 4] as number));
+    const mean = steps.reduce((a, b) => a + b, 0) / steps.length;
+    for (const step of steps) {
+      expect(step).toBeGreaterThan(0.5 * mean);
+      expect(step).toBeLessThan(1.5 * mean);
+    }
+  });
+
+  it('takes from it what a discharge delivers', () => {
+    const state = startUnit(unit);
+    const at = { hot: 0.8, cold: 0.8 };
+    let before = 0;
+    for (let n = 1; n <= 8; n++) {
+      const others = { flow: -0.9, mode: -1, power: -58e3, ambient: 283 };
+      const scan = frontedScan(unit, n * 60_000, at, others);
+      const { state_of_charge } = advance(unit, state, scan, NONE).estimate;
+      if (n > 2) {
+        const aux = unit.machine.auxiliary_running_W;
+        const share = (58e3 + aux) / (unit.rated_power_W + aux);
+        expect(before - state_of_charge).toBeCloseTo(share / 60 / unit.rated_hours, 9);
+      }
+      before = state_of_charge;
+    }
   });
 });
 
