@@ -6,6 +6,7 @@ import { estimateSchema } from '../../src/adapters/http/schema/estimate.js';
 import { INTAKE_COUNTS } from '../../src/adapters/mqtt/intake.js';
 import { END_CAUSES, FRONT_REASONS, QUALITIES, SENSOR_VERDICTS } from '../../src/core/estimate.js';
 import { READING_FATES } from '../../src/core/scan/assemble.js';
+import { TUNE_REASONS } from '../../src/core/tune/result.js';
 import { EVENT_KINDS } from '../../src/core/watch/event.js';
 import { KIND_CLASSES } from '../../src/core/watch/kinds.js';
 import { EXIT_CODES } from '../../src/errors.js';
@@ -51,7 +52,7 @@ function keysOf(schema: unknown): string[] {
 describe('README.md names everything that a user meets', () => {
   it('each command, with an example and with every option of its own', () => {
     const commands = found('src/commands', /\.command\('([a-z]+)'\)/g);
-    expect(commands).toHaveLength(6);
+    expect(commands).toHaveLength(7);
     for (const command of commands) {
       const [examples, options] = rows(readme, command);
       expect(examples, command).toContain(`\`rockhour ${command} --`);
@@ -93,6 +94,7 @@ describe('README.md names everything that a user meets', () => {
     ['reason without a front', FRONT_REASONS],
     ['cause of an end', END_CAUSES],
     ['verdict on a sensor', SENSOR_VERDICTS],
+    ['reason of a value that is not tuned', TUNE_REASONS],
   ])('each %s, in a row of its own that explains it', (_, words) => {
     expect(words.filter((word) => !rows(readme, word).some((row) => row.length > 30))).toEqual([]);
   });

@@ -22,7 +22,9 @@ import {
 const COUNT = STORE_PARAMETERS.length;
 /** Noise of the first rounds over the last [-]: a front that stands elsewhere is drawn in step by step. */
 const ROUGH = [30, 5] as const;
-const MOST_ROUNDS = 12;
+const MOST_ROUNDS = 16;
+/** The noise is measured so often, then it stays: each change moves what it is measured by. */
+const MEASURED = 3;
 /** A round that moves nothing by more than this share of its sigma ends the search. */
 const SETTLED = 0.05;
 /** Largest step of a parameter in one round. */
@@ -108,11 +110,11 @@ export function fitStore(
     onRound(round + 1);
     if (rough > 1) continue;
     const settled = worst < SETTLED;
-    if (settled && measured >= 2) {
+    if (settled && measured >= MEASURED) {
       converged = true;
       break;
     }
-    if (worst > 1) continue;
+    if (worst > 1 || measured >= MEASURED) continue;
     const left = leftover(data, columns, normals, step, bins, s, noise_K, estimator);
     measured++;
     const typical = median(left.map((one) => one.rms_K));

@@ -62,7 +62,7 @@ export const NUISANCE = {
    * conduction across speaks louder than that along: there it is left to itself.
    */
   stringTransfer: 0.07,
-  stringConductivity: 0.3,
+  stringConductivity: 0.2,
   rimConductivity: 0.9,
   /**
    * A string samples one ring of its part of the bed: ln of its flow against that part's mean. With the
@@ -72,7 +72,7 @@ export const NUISANCE = {
   /**
    * ln of the heat capacity of the wall that takes part: flanges, the first centimetres of insulation.
    */
-  wallSteel: 0.3,
+  wallSteel: 0.1,
   /**
    * Beside the wall a front lags or leads by what steel and rock there exchange, a decimetre or two;
    * models of it differ by half of that. Shift of the outermost string's front in a run, and the part
