@@ -1,7 +1,7 @@
 import type { Direction } from '../definitions.js';
-import { meanFactor } from '../track/storeEstimate.js';
 import type { StoreModel, StoreState } from '../track/storeTracker.js';
 import { streamsOf } from '../track/streams.js';
+import type { TubeState } from '../track/tube.js';
 import type { UnitModel } from '../unitModel.js';
 import type { UnitState } from '../unitState.js';
 import { type Gaussian, independent, observe, transformed } from './gaussian.js';
@@ -116,12 +116,28 @@ export function meanFlowFactor(model: StoreModel, state: StoreState): number {
   return streamsOf(model, state).reduce((sum, s) => sum + s.share * s.flowFactor, 0);
 }
 
-/** ln of a store's mean flow factor, with what the strings' places leave open. */
+/**
+ * ln of a store's mean flow factor, with what the strings' places leave open. All tubes read the
+ * same thermometers at the inlets: what of a tube's variance these explain adds up as one, the rest as
+ * independent,
+ *
+ *   var = sum w^2 (v - v_i) + (sum w sqrt(v_i))^2,     v_i = P_fi^2/P_ii
+ */
 function meanFlow(store: StoreModel, state: StoreState): { log: number; variance: number } {
-  const { value, sigma } = meanFactor(store, state, 'flow');
-  const squares = store.tubes.reduce((sum, tube) => sum + tube.string.area_share ** 2, 0);
-  return {
-    log: Math.log(meanFlowFactor(store, state)),
-    variance: (sigma / value) ** 2 + STRING_FLOW_SIGMA ** 2 * squares,
-  };
+  let own = 0;
+  let shared = 0;
+  store.tubes.forEach((tube, k) => {
+    const { flow, inlet, size } = tube.layout;
+    const p = (state.tubes[k] as TubeState).covariance;
+    const w = tube.string.area_share;
+    const v = p[flow * size + flow] as number;
+    const explained = [inlet.charge_inlet, inlet.discharge_inlet].reduce((sum, i) => {
+      const variance = p[i * size + i] as number;
+      return variance > 0 ? sum + (p[flow * size + i] as number) ** 2 / variance : sum;
+    }, 0);
+    const common = Math.min(v, explained);
+    own += w * w * (v - common + STRING_FLOW_SIGMA ** 2);
+    shared += w * Math.sqrt(common);
+  });
+  return { log: Math.log(meanFlowFactor(store, state)), variance: own + shared * shared };
 }
