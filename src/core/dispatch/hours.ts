@@ -49,15 +49,21 @@ const J_PER_MWH = 3.6e9;
 export function computeHours(input: HoursInput, power_W: number): DispatchAnswer {
   if (!(power_W > 0)) throw new RangeError(`power_W = ${power_W}: expected above 0`);
   const roller = createRoller(input, power_W);
-  const best = roller.fine();
+  const best = roller.best();
   if (!(best.end_s > 0) || !Number.isFinite(best.end_s)) {
     return answer(power_W, certain(best, roller.most_s), best.ends_by);
   }
   const base = roller.roll();
+  const fine = roller.rollFine();
   // Rules that were not reached while rolling cannot bind; they are left out of the minimum.
-  const live = RULES.map((_, r) => r).filter(
-    (r) => Number.isFinite(best.times_s[r] as number) && Number.isFinite(base.times_s[r] as number),
+  const live = RULES.map((_, r) => r).filter((r) =>
+    [best, base, fine].every((result) => Number.isFinite(result.times_s[r] as number)),
   );
+  if (live.length === 0) {
+    // Only at the very end of the time rolled: nothing to tell its sigma by.
+    const hours = best.end_s / 3600;
+    return answer(power_W, { p90: 0, p50: hours, p10: roller.most_s / 3600 }, best.ends_by);
+  }
   const covariance = live.map(() => new Float64Array(live.length));
   const slope = (times: Float64Array, delta: number, from = base): number[] =>
     live.map((r) => {
@@ -70,9 +76,8 @@ export function computeHours(input: HoursInput, power_W: number): DispatchAnswer
       slope(roller.roll({ store: s, bump: b }).times_s, BUMP_K),
     );
     const flow = slope(roller.roll({ store: s, flow: PROBE_LOG }).times_s, PROBE_LOG);
-    // Coarse cells make a steep front as wide as they are and feel little of the transfer.
-    const better = roller.fine({ store: s, transfer: PROBE_LOG });
-    const transfer = slope(better.times_s, PROBE_LOG, best);
+    const better = roller.rollFine({ store: s, transfer: PROBE_LOG });
+    const transfer = slope(better.times_s, PROBE_LOG, fine);
     addUnseen(input, s, live, power_W, covariance);
     const state = input.states[s] as StoreState;
     return addProfile(model, state, { bumps, flow, transfer }, covariance);
@@ -136,7 +141,7 @@ export function centralHours(
   power_W: number,
 ): { hours: number; ends_by: EndCause } {
   const roller = createRoller(input, power_W);
-  const result = roller.fine();
+  const result = roller.best();
   return {
     hours: Math.min(result.end_s, roller.most_s) / 3600,
     ends_by: result.ends_by,

@@ -10,11 +10,11 @@ import { refined } from './refine.js';
 import { type RolloutInput, type RolloutResult, type RolloutStore, rollOut } from './rollout.js';
 
 const STEP_S = 300;
-/** On half cells, such that at 60 % of rated power a step is still taken in one piece. */
+/** On half cells: a little shorter, so that the bed takes most steps in two pieces, not in three. */
 const FINE_STEP_S = 240;
 const MOST_RATED = 4;
 /** Smooth bumps per store along which the sensitivity to the profile is taken. */
-export const BUMPS = 8;
+export const BUMPS = 6;
 export const BUMP_K = 2;
 
 /** What differs from the estimate: of one store, or the machine's work in ln. */
@@ -34,8 +34,10 @@ export interface Roller {
    * beside them takes; two rollouts differ in nothing but what is perturbed.
    */
   roll(change?: Perturbation): RolloutResult;
-  /** On cells of half the length: see `refined`. */
-  fine(change?: Perturbation): RolloutResult;
+  /** The same on half cells, where the transfer shows: a coarse cell is as wide as a steep front. */
+  rollFine(change?: Perturbation): RolloutResult;
+  /** The best there is, with the layers at the wall on half cells: see `refined`. */
+  best(): RolloutResult;
 }
 
 /** Rollouts of one unit's present state at one net power [W]. */
@@ -75,30 +77,20 @@ export function createRoller(input: HoursInput, power_W: number): Roller {
     stores.map((store, s) =>
       s === change.store ? perturb(input.models[s] as StoreModel, store, change) : store,
     );
-  const workFactor = (change: Perturbation): number => Math.exp(log + (change.work ?? 0));
+  const go = (
+    of: readonly RolloutStore[],
+    step_s: number,
+    on: readonly (readonly BedWork[])[],
+    change: Perturbation,
+  ): RolloutResult =>
+    rollOut({ ...common, step_s, stores: of, workFactor: Math.exp(log + (change.work ?? 0)) }, on);
   const fineWorks = worksOf(2);
   return {
     most_s,
-    roll: (change = {}) =>
-      rollOut(
-        {
-          ...common,
-          step_s: STEP_S,
-          stores: changed(bare, change),
-          workFactor: workFactor(change),
-        },
-        works,
-      ),
-    fine: (change = {}) =>
-      rollOut(
-        {
-          ...common,
-          step_s: FINE_STEP_S,
-          stores: changed(whole, change).map(refined),
-          workFactor: workFactor(change),
-        },
-        fineWorks,
-      ),
+    roll: (change = {}) => go(changed(bare, change), STEP_S, works, change),
+    rollFine: (change = {}) =>
+      go(changed(bare, change).map(refined), FINE_STEP_S, fineWorks, change),
+    best: () => go(whole.map(refined), FINE_STEP_S, fineWorks, {}),
   };
 }
 

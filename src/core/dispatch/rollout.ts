@@ -69,7 +69,7 @@ export const SWEEP_MOST_S = 600;
 /** Meanwhile a step is taken in so many parts: a lid changes within minutes, and the flow with it. */
 const SWEEP_PARTS = 5;
 /** After the first rule is broken the others are followed for this share of the time longer. */
-const FOLLOW = 0.2;
+const FOLLOW = 0.15;
 
 /**
  * Discharges a copy of the beds at constant net power until a stop rule, all tubes of both stores
