@@ -1,9 +1,10 @@
 import type { SensorVerdict } from '../estimate.js';
 import type { Movement } from './judgeMovement.js';
+import type { Start } from './judgeStart.js';
 import type { Usual } from './judgeUsual.js';
 
 /** What is remembered of one thermocouple to judge it. Plain values, bounded. */
-export interface SensorMemory extends Movement, Usual {
+export interface SensorMemory extends Movement, Usual, Start {
   verdict: SensorVerdict | null;
   since_ms: number;
   evidence: string;
@@ -81,6 +82,9 @@ export function freshSensor(): SensorMemory {
     usualSigma_K: Number.NaN,
     usualAge_s: 0,
     beyond_s: 0,
+    low_K: Number.NaN,
+    high_K: Number.NaN,
+    guessed_m: 0,
   };
 }
 

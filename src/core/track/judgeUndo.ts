@@ -21,7 +21,7 @@ export function forgetSensor(
   sensor: number,
   off_K: number,
 ): void {
-  const { layout, estimator, tables, string } = model;
+  const { layout, estimator } = model;
   const { size, cells } = layout;
   const own = layout.offset + sensor;
   const p = state.covariance;
@@ -45,14 +45,32 @@ export function forgetSensor(
   state.further[own - cells] = 0;
   for (let j = 0; j < size; j++) p[own * size + j] = p[j * size + own] = 0;
   p[own * (size + 1)] = prior;
+  widen(model, state, sensor, Math.min(BENT_MOST_K, BENT_SHARE * Math.abs(off_K)), BENT_LENGTH_M);
+}
+
+/**
+ * Adds a doubt of `sigma_K` about the rock at a sensor, which fades along the bed as a Gaussian of
+ * `length_m`: all of it moves together.
+ */
+export function widen(
+  model: TubeModel,
+  state: TubeState,
+  sensor: number,
+  sigma_K: number,
+  length_m: number,
+): void {
+  const { layout, tables, string } = model;
+  const { size, cells } = layout;
+  const p = state.covariance;
   const dx = tables.bed.length_m / cells;
   const x = string.thermocouples[sensor]?.position_m as number;
-  const height = BENT_SHARE * Math.min(BENT_MOST_K / BENT_SHARE, Math.abs(off_K));
-  const bump = (i: number): number =>
-    height * Math.exp(-0.5 * (((i + 0.5) * dx - x) / BENT_LENGTH_M) ** 2);
+  const bump = Float64Array.from(
+    { length: cells },
+    (_, i) => sigma_K * Math.exp(-0.5 * (((i + 0.5) * dx - x) / length_m) ** 2),
+  );
   for (let i = 0; i < cells; i++) {
     for (let j = 0; j < cells; j++) {
-      p[i * size + j] = (p[i * size + j] as number) + bump(i) * bump(j);
+      p[i * size + j] = (p[i * size + j] as number) + (bump[i] as number) * (bump[j] as number);
     }
   }
 }

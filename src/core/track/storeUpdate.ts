@@ -1,6 +1,7 @@
 import type { SensorVerdict } from '../estimate.js';
 import { doubtBeside, GATE_SIGMAS, isBelieved, type SensorMemory } from './judge.js';
 import { judgeGroups } from './judgeGroup.js';
+import { followStart, widenGuesses } from './judgeStart.js';
 import { forgetSensor } from './judgeUndo.js';
 import {
   type Candidate,
@@ -43,6 +44,7 @@ export function updateStore(
 ): StoreStep {
   const work = predictAll(model, state, values, time_ms, drive?.dt_s ?? 0);
   const { candidates } = work;
+  followStart(model, state, work, drive);
   const [low, high] = plausibleRange(model);
   const usable = (c: Candidate): boolean => {
     const memory = memoryOf(state, c);
@@ -51,7 +53,8 @@ export function updateStore(
     );
   };
   // First the common cause (a card, a cold junction), else half a store's fault passes for a lost estimate.
-  if (judgeGroups(model, state, work, usable, time_ms)) {
+  const stepped = judgeGroups(model, state, work, usable, time_ms);
+  if (stepped || widenGuesses(model, state, work)) {
     for (let k = 0; k < model.tubes.length; k++) predictTubeReadings(model, state, work, k);
   }
   const sound = candidates.filter(usable);

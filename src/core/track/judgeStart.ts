@@ -1,0 +1,91 @@
+import { GATE_SIGMAS } from './judge.js';
+import { isBelieved, type SensorMemory } from './judgeMemory.js';
+import { widen } from './judgeUndo.js';
+import { type Candidate, innovation, type JudgeWork } from './judgeWork.js';
+import type { StoreModel, StoreState } from './storeTracker.js';
+import type { TubeDrive, TubeModel, TubeState } from './tube.js';
+
+/**
+ * Between thermocouples a profile is drawn at its start by guess. Until the front has travelled from
+ * one to the next, a reading that lies between what they read at the start shows that guess wrong, not the
+ * sensor: with three on a string that is half of a charge.
+ */
+export interface Start {
+  /** What the profile may be on either side of it, as far as the next thermocouples [K]. */
+  low_K: number;
+  high_K: number;
+  /** Way that the front still has to go until the guess has passed it [m]. */
+  guessed_m: number;
+}
+
+/**
+ * Widens a tube where readings that its guessed profile may have had stand outside the gate: by what
+ * they are off, over half of the way that was guessed. Call before judging.
+ *
+ * @returns true where a covariance was changed
+ */
+export function widenGuesses(model: StoreModel, state: StoreState, work: JudgeWork): boolean {
+  let changed = false;
+  for (const c of work.candidates) {
+    const memory = state.sensors[c.tube]?.[c.sensor] as SensorMemory;
+    if (memory.guessed_m === 0 || !isBelieved(memory)) continue;
+    const off = Math.abs(innovation(c));
+    const room = GATE_SIGMAS * c.sigma_K;
+    if (!(off > room)) continue;
+    if (c.value_K < memory.low_K - room || c.value_K > memory.high_K + room) continue;
+    const tube = model.tubes[c.tube] as TubeModel;
+    widen(tube, state.tubes[c.tube] as TubeState, c.sensor, off, memory.guessed_m / 2);
+    changed = true;
+  }
+  return changed;
+}
+
+/** Call before judging: notes the start, and how far the front has gone since. */
+export function followStart(
+  model: StoreModel,
+  state: StoreState,
+  work: JudgeWork,
+  drive: TubeDrive | null,
+): void {
+  if (state.settled <= 1) {
+    work.candidates.forEach((c, i) => {
+      noteStart(model, state.sensors[c.tube]?.[c.sensor] as SensorMemory, work, c, i);
+    });
+    return;
+  }
+  if (drive === null || drive.massFlux_kg_m2s === 0) return;
+  const { tables } = model;
+  const s = tables.segments >> 1;
+  const travel =
+    (Math.abs(drive.massFlux_kg_m2s) * drive.dt_s * (tables.fluidHeatCapacity[s] as number)) /
+    (tables.heatCapacity[s] as number);
+  for (const sensors of state.sensors) {
+    for (const memory of sensors) memory.guessed_m = Math.max(0, memory.guessed_m - travel);
+  }
+}
+
+function noteStart(
+  model: StoreModel,
+  memory: SensorMemory,
+  work: JudgeWork,
+  c: Candidate,
+  i: number,
+): void {
+  const { thermocouples } = (model.tubes[c.tube] as TubeModel).string;
+  const { reference_cold_K: cold, reference_hot_K: hot, bed } = model.store;
+  const place = (k: number): number => thermocouples[k]?.position_m as number;
+  const x = place(c.sensor);
+  memory.low_K = c.reading.value_K;
+  memory.high_K = c.reading.value_K;
+  memory.guessed_m = 0;
+  for (const side of [-1, 1]) {
+    const next = c.sensor + side;
+    const outermost = next < 0 || next >= thermocouples.length;
+    const beside = (work.candidates[i + side] as Candidate | undefined)?.reading.value_K as number;
+    const values = outermost ? [cold, hot] : [beside];
+    memory.low_K = Math.min(memory.low_K, ...values);
+    memory.high_K = Math.max(memory.high_K, ...values);
+    const end = side < 0 ? x : bed.length_m - x;
+    memory.guessed_m = Math.max(memory.guessed_m, outermost ? end : Math.abs(place(next) - x));
+  }
+}
