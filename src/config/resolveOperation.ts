@@ -76,11 +76,12 @@ export function resolveLimits(block: LimitsBlock): LimitsDefinition {
 const STAND_SHARE = 0.02;
 
 export function resolveEstimator(unit: UnitBlock): EstimatorDefinition {
-  const { offset_time_h, position_sigma_mm, stand_flow_kg_s, ...same } = unit.estimator;
+  const { offset_time_h, position_sigma_mm, stand_flow_kg_s, leak_sigma, ...same } = unit.estimator;
   return {
     ...same,
     offset_time_s: offset_time_h * 3600,
     position_sigma_m: position_sigma_mm * 1e-3,
+    leak_sigma_kg_s: leak_sigma * unit.limits.discharge.flow_max_kg_s,
     stand_flow_kg_s: stand_flow_kg_s ?? STAND_SHARE * unit.limits.discharge.flow_max_kg_s,
   };
 }

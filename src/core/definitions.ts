@@ -219,6 +219,8 @@ export interface EstimatorDefinition {
   readonly gas_share_sigma: number;
   /** Uncertainty of the gas temperature at an inlet [K]. */
   readonly inlet_sigma_K: number;
+  /** Flow that may leak through a store while the unit stands; absent or 0 = none [kg/s]. */
+  readonly leak_sigma_kg_s?: number;
   /** Relative uncertainty of the bed's heat capacity, and of the machine's specific work. */
   readonly heat_capacity_sigma: number;
   readonly machine_factor_sigma: number;

@@ -65,6 +65,12 @@ export const estimatorSchema = z.strictObject({
   ).default(0.3),
   gas_share_sigma: sigma('-', 2, 'Uncertainty of gas_share.', 0.3),
   inlet_sigma_K: sigma('K', 50, 'Uncertainty of the fluid temperature at an inlet.', 2),
+  leak_sigma: sigma(
+    '-',
+    0.1,
+    'Flow through a valve that leaks while the unit stands, as a share of the greatest discharge flow.',
+    0.002,
+  ),
   heat_capacity_sigma: sigma(
     '-',
     0.5,

@@ -91,5 +91,19 @@ export function driveOf(
     ambient_K: conditions.ambient_K,
     dt_s,
     travelSigma_m,
+    ...(conditions.flow_kg_s === 0 ? { standing_K: standingGas(model, store.id, scan) } : {}),
   };
+}
+
+/** Gas in the pipes at both ends as measured [K]; NaN where it is not. */
+function standingGas(
+  model: UnitModel,
+  store: string,
+  scan: Scan,
+): Record<'charge_inlet' | 'discharge_inlet', number> {
+  const at = (end: 'charge_inlet' | 'discharge_inlet'): number => {
+    const channel = model.map.gas[store]?.[end] ?? -1;
+    return channel >= 0 ? (scan.values[channel] as number) : Number.NaN;
+  };
+  return { charge_inlet: at('charge_inlet'), discharge_inlet: at('discharge_inlet') };
 }

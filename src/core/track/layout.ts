@@ -7,6 +7,7 @@ import type { EstimatorDefinition, StringDefinition } from '../definitions.js';
  *   transfer  ln(phi_h), on top of the configured factor
  *   share     share of the gas temperature that the junctions see, net of their lag [-]
  *   inlet     offset of the gas temperature measured at either end [K]
+ *   leak      mass flux through a valve that leaks while the unit stands, unmetered, + = charge [kg/m2s]
  *   offset    one per thermocouple [K]
  *   position  error of each thermocouple's position [m]
  *   group     offset common to each group that shares a card, cable or cold junction [K]
@@ -18,6 +19,7 @@ export interface TubeLayout {
   readonly transfer: number;
   readonly share: number;
   readonly inlet: Readonly<Record<'charge_inlet' | 'discharge_inlet', number>>;
+  readonly leak: number;
   readonly offset: number;
   readonly position: number;
   readonly group: number;
@@ -36,13 +38,14 @@ export function layoutOf(string: StringDefinition, estimator: EstimatorDefinitio
   });
   const cells = estimator.cells;
   const sensors = string.thermocouples.length;
-  const offset = cells + 5;
+  const offset = cells + 6;
   return {
     cells,
     flow: cells,
     transfer: cells + 1,
     share: cells + 2,
     inlet: { charge_inlet: cells + 3, discharge_inlet: cells + 4 },
+    leak: cells + 5,
     offset,
     position: offset + sensors,
     group: offset + 2 * sensors,

@@ -1,5 +1,11 @@
 import { temperatureAt } from '../bed/tables.js';
-import type { TubeDrive, TubeModel, TubeScratch, TubeState } from './tube.js';
+import {
+  leakSigma,
+  type TubeDrive,
+  type TubeModel,
+  type TubeScratch,
+  type TubeState,
+} from './tube.js';
 
 /**
  * What the bed model does not know, per scan, added to a tube's covariance:
@@ -24,6 +30,8 @@ const STANDING_K_PER_SQRT_H = 0.05;
 const FLOW_WALK_PER_SQRT_H = 0.01;
 const TRANSFER_WALK_PER_SQRT_H = 0.06;
 const SHARE_WALK_PER_SQRT_H = 0.02;
+/** A leaking valve keeps what it lets through within this share of the prior over a day. */
+const LEAK_WALK_PER_SQRT_DAY = 0.3;
 const HOUR_S = 3600;
 /**
  * Where the innovations of a tube are on average more than this times larger than expected (their
@@ -78,6 +86,9 @@ export function addProcessNoise(
     walk(p, size, layout.flow, FLOW_WALK_PER_SQRT_H ** 2 * hours);
     walk(p, size, layout.transfer, adapt * adapt * TRANSFER_WALK_PER_SQRT_H ** 2 * hours);
     walk(p, size, layout.share, SHARE_WALK_PER_SQRT_H ** 2 * hours);
+  } else {
+    const step = LEAK_WALK_PER_SQRT_DAY * leakSigma(model);
+    walk(p, size, layout.leak, (step * step * hours) / 24);
   }
   const decay = Math.exp(-drive.dt_s / estimator.offset_time_s);
   const inlet = estimator.inlet_sigma_K ** 2;

@@ -1,5 +1,5 @@
 import type { TubeModel, TubeState } from './tube.js';
-import { setTubeTemperatures } from './tube.js';
+import { leakSigma, setTubeTemperatures } from './tube.js';
 
 /** One usable reading for a start. */
 export interface StartReading {
@@ -187,6 +187,7 @@ export function priorOfFurther(model: TubeModel, state: TubeState): void {
   set(layout.share, estimator.gas_share, estimator.gas_share_sigma);
   set(layout.inlet.charge_inlet, 0, estimator.inlet_sigma_K);
   set(layout.inlet.discharge_inlet, 0, estimator.inlet_sigma_K);
+  set(layout.leak, 0, leakSigma(model));
   for (let s = 0; s < layout.sensors; s++) {
     set(layout.offset + s, 0, estimator.offset_sigma_K);
     set(layout.position + s, 0, estimator.position_sigma_m);

@@ -1,7 +1,7 @@
 import { enthalpyAt } from '../bed/tables.js';
 import type { StoreModel, StoreState } from './storeTracker.js';
 import { streamsOf } from './streams.js';
-import type { TubeModel, TubeState } from './tube.js';
+import { leakSigma, type TubeModel, type TubeState } from './tube.js';
 import { unseenSigma } from './unseenFlow.js';
 
 const J_PER_MWH = 3.6e9;
@@ -131,8 +131,11 @@ function tubeVariance(tube: TubeModel, state: TubeState, span: number): TubeVari
     causes.set(name, { part: projectedOn(index) / Math.sqrt(own), unseen: own / (prior * prior) });
   };
   add('flow', layout.flow, estimator.flow_factor_sigma);
+  add('transfer', layout.transfer, estimator.heat_transfer_factor_sigma);
+  add('share', layout.share, estimator.gas_share_sigma);
   add('charge_inlet', layout.inlet.charge_inlet, estimator.inlet_sigma_K);
   add('discharge_inlet', layout.inlet.discharge_inlet, estimator.inlet_sigma_K);
+  add('leak', layout.leak, leakSigma(tube));
   layout.groups.forEach((name, g) => {
     add(`group ${name}`, layout.group + g, estimator.group_offset_sigma_K);
   });

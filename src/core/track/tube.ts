@@ -55,6 +55,7 @@ export interface TubeScratch {
   readonly probeEnthalpy: Float64Array;
   readonly flowColumn: Float64Array;
   readonly transferColumn: Float64Array;
+  readonly leakColumn: Float64Array;
   readonly slope: Float64Array;
   readonly temperature: Float64Array;
   readonly gain: Float64Array;
@@ -98,6 +99,7 @@ export function createTubeScratch(layout: TubeLayout): TubeScratch {
     probeEnthalpy: new Float64Array(cells),
     flowColumn: new Float64Array(cells),
     transferColumn: new Float64Array(cells),
+    leakColumn: new Float64Array(cells),
     slope: new Float64Array(cells),
     temperature: new Float64Array(cells),
     gain: new Float64Array(layout.size),
@@ -117,10 +119,52 @@ export interface TubeDrive {
   readonly dt_s: number;
   /** Unknown travel of the front in this scan [m], one sigma, in line with that of earlier scans. */
   readonly travelSigma_m: number;
+  /** While standing: gas temperatures at both ends, which a leak would carry in [K]; NaN = unknown. */
+  readonly standing_K?: Readonly<Record<'charge_inlet' | 'discharge_inlet', number>>;
 }
 
 /** Relative step of the finite differences that form the columns of flow and transfer factor. */
 const PROBE = 1e-4;
+/** Step of the leak's column, as a share of its sigma. */
+const LEAK_PROBE = 0.1;
+
+/** Sigma of the mass flux that leaks through a tube while standing, before any reading [kg/m2s]. */
+export function leakSigma(model: TubeModel): number {
+  return (model.estimator.leak_sigma_kg_s ?? 0) / model.tables.bed.area_m2;
+}
+
+/** What leaks through a tube in this scan [kg/m2s]: nothing while gas is driven through it. */
+export function leakOf(model: TubeModel, state: TubeState, drive: TubeDrive): number {
+  if (drive.massFlux_kg_m2s !== 0 || leakSigma(model) === 0) return 0;
+  return state.further[model.layout.leak - model.layout.cells] as number;
+}
+
+/** What drives the bed of a tube in a scan: metered flow with its factor, or a leak while standing. */
+export function tubeStep(
+  model: TubeModel,
+  state: TubeState,
+  drive: TubeDrive,
+): BedStep & { readonly end: 'charge_inlet' | 'discharge_inlet' } {
+  const { layout, tables } = model;
+  const at = (index: number): number => state.further[index - layout.cells] as number;
+  const standing = drive.massFlux_kg_m2s === 0;
+  const flux = standing
+    ? leakOf(model, state, drive)
+    : drive.massFlux_kg_m2s * Math.exp(at(layout.flow));
+  const end = flux >= 0 ? 'charge_inlet' : 'discharge_inlet';
+  const known = standing ? (drive.standing_K?.[end] ?? Number.NaN) : drive.inlet_K;
+  // What leaks in unmeasured has stood beside the bed's end.
+  const beside = state.enthalpy[flux >= 0 ? 0 : layout.cells - 1] as number;
+  return {
+    end,
+    massFlux_kg_m2s: flux,
+    inlet_K: Number.isFinite(known) ? known + at(layout.inlet[end]) : temperatureAt(tables, beside),
+    ambient_K: drive.ambient_K,
+    dt_s: drive.dt_s,
+    heatTransferFactor: Math.exp(at(layout.transfer)),
+    wallLoss_W_m3K: model.wallLoss_W_m3K,
+  };
+}
 
 /** Moves a tube over one scan: its mean by the bed model, its covariance by the model's tangent. */
 export function predictTube(
@@ -130,32 +174,51 @@ export function predictTube(
   scratch: TubeScratch,
 ): void {
   const { layout, tables } = model;
-  const further = state.further;
-  const at = (index: number): number => further[index - layout.cells] as number;
-  const end = drive.massFlux_kg_m2s >= 0 ? 'charge_inlet' : 'discharge_inlet';
-  const whole: BedStep = {
-    massFlux_kg_m2s: drive.massFlux_kg_m2s * Math.exp(at(layout.flow)),
-    inlet_K: drive.inlet_K + at(layout.inlet[end]),
-    ambient_K: drive.ambient_K,
-    dt_s: drive.dt_s,
-    heatTransferFactor: Math.exp(at(layout.transfer)),
-    wallLoss_W_m3K: model.wallLoss_W_m3K,
-  };
+  const { end, ...whole } = tubeStep(model, state, drive);
+  const standing = drive.massFlux_kg_m2s === 0;
+  const flowing = !standing;
+  const leaks = standing && leakSigma(model) > 0;
+  const probe = LEAK_PROBE * leakSigma(model);
   const substeps = planSubsteps(tables, layout.cells, whole);
   const step: BedStep = { ...whole, dt_s: whole.dt_s / substeps };
   const { work, tangent } = scratch;
   let gasOut = 0;
   for (let n = 0; n < substeps; n++) {
-    const flowing = step.massFlux_kg_m2s !== 0;
     if (flowing) {
-      probeColumn(tables, state.enthalpy, step, scratch, 'flow');
-      probeColumn(tables, state.enthalpy, step, scratch, 'transfer');
+      const flux = step.massFlux_kg_m2s * (1 + PROBE);
+      const factor = step.heatTransferFactor * (1 + PROBE);
+      probeColumn(
+        tables,
+        state.enthalpy,
+        { ...step, massFlux_kg_m2s: flux },
+        scratch,
+        scratch.flowColumn,
+      );
+      probeColumn(
+        tables,
+        state.enthalpy,
+        { ...step, heatTransferFactor: factor },
+        scratch,
+        scratch.transferColumn,
+      );
+    } else if (leaks) {
+      const flux = step.massFlux_kg_m2s + (step.massFlux_kg_m2s >= 0 ? probe : -probe);
+      probeColumn(
+        tables,
+        state.enthalpy,
+        { ...step, massFlux_kg_m2s: flux },
+        scratch,
+        scratch.leakColumn,
+      );
     }
     bedSubstep(tables, state.enthalpy, step, work);
     gasOut += work.outlet_K;
     if (flowing) {
-      finishColumn(tables, state.enthalpy, scratch.flowColumn);
-      finishColumn(tables, state.enthalpy, scratch.transferColumn);
+      finishColumn(tables, state.enthalpy, scratch.flowColumn, PROBE);
+      finishColumn(tables, state.enthalpy, scratch.transferColumn, PROBE);
+    } else if (leaks) {
+      const sign = step.massFlux_kg_m2s >= 0 ? 1 : -1;
+      finishColumn(tables, state.enthalpy, scratch.leakColumn, sign * probe);
     }
     linearise(tables, state.enthalpy, step, work, tangent);
     const rows = {
@@ -165,15 +228,17 @@ export function predictTube(
             { row: layout.flow, column: scratch.flowColumn },
             { row: layout.transfer, column: scratch.transferColumn },
           ]
-        : [],
+        : leaks
+          ? [{ row: layout.leak, column: scratch.leakColumn }]
+          : [],
     };
     applyTangent(tangent, state.covariance, layout.size, rows, false, scratch.vectors);
     transpose(state.covariance, layout.size);
     applyTangent(tangent, state.covariance, layout.size, rows, true, scratch.vectors);
     addProcessNoise(model, state, { ...drive, dt_s: step.dt_s, scans: 1 / substeps }, scratch);
   }
-  state.outlet_K = gasOut / substeps;
-  const sign = Math.sign(whole.massFlux_kg_m2s);
+  state.outlet_K = standing ? Number.NaN : gasOut / substeps;
+  const sign = Math.sign(drive.massFlux_kg_m2s);
   loosenPositions(model, state, work.gasLag_m, sign);
   for (let i = 0; i < layout.cells; i++) state.gasLag_m[i] = sign * (work.gasLag_m[i] as number);
 }
@@ -208,30 +273,29 @@ function loosenPositions(
   }
 }
 
-/** Puts T' of the perturbed step into the column; `finishColumn` makes the difference quotient. */
+/** Puts H' of the perturbed step into the column; `finishColumn` makes the difference quotient. */
 function probeColumn(
   tables: BedTables,
   enthalpy: Float64Array,
-  step: BedStep,
+  probed: BedStep,
   scratch: TubeScratch,
-  which: 'flow' | 'transfer',
+  column: Float64Array,
 ): void {
-  const probed: BedStep =
-    which === 'flow'
-      ? { ...step, massFlux_kg_m2s: step.massFlux_kg_m2s * (1 + PROBE) }
-      : { ...step, heatTransferFactor: step.heatTransferFactor * (1 + PROBE) };
-  scratch.probeEnthalpy.set(enthalpy);
-  bedSubstep(tables, scratch.probeEnthalpy, probed, scratch.probe);
-  const column = which === 'flow' ? scratch.flowColumn : scratch.transferColumn;
-  column.set(scratch.probeEnthalpy);
+  column.set(enthalpy);
+  bedSubstep(tables, column, probed, scratch.probe);
 }
 
-function finishColumn(tables: BedTables, enthalpy: Float64Array, column: Float64Array): void {
+function finishColumn(
+  tables: BedTables,
+  enthalpy: Float64Array,
+  column: Float64Array,
+  delta: number,
+): void {
   for (let i = 0; i < column.length; i++) {
     // Divided by the heat capacity of the unperturbed cell: exact within a table segment.
     const h = enthalpy[i] as number;
     const dT = temperatureAt(tables, column[i] as number) - temperatureAt(tables, h);
-    column[i] = dT / PROBE;
+    column[i] = dT / delta;
   }
 }
 

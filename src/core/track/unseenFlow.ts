@@ -2,6 +2,7 @@ import { energyPosition } from './energyPosition.js';
 import { referenceEnthalpies } from './storeEnergy.js';
 import type { StoreModel, StoreState } from './storeTracker.js';
 import { streamsOf } from './streams.js';
+import type { TubeState } from './tube.js';
 
 /**
  * A string samples one ring of the part of the bed for which it stands; gas flows a little
@@ -24,11 +25,39 @@ export function followOrigin(model: StoreModel, state: StoreState, restarted: bo
   if (restarted || share < SWEPT || share > 1 - SWEPT) state.origin_m = x;
 }
 
-/** One sigma of the state of charge from flow that no string sees [-]. */
+/**
+ * Contact, conductivity and steel at the wall are known to about a fifth: so are the differences of
+ * the rock there from the rock at the outermost string.
+ */
+const WALL_SIGMA = 0.2;
+
+/** One sigma of the state of charge from rock that no string sees: its flow, and the wall [-]. */
 export function unseenSigma(model: StoreModel, state: StoreState): number {
-  const way = Math.abs(storeEnergyPosition(model, state) - state.origin_m);
+  const length = model.store.bed.length_m;
+  const way = Math.abs(storeEnergyPosition(model, state) - state.origin_m) / length;
   const squares = model.tubes.reduce((sum, tube) => sum + tube.string.area_share ** 2, 0);
-  return (UNSEEN_FLOW * way * Math.sqrt(squares)) / model.store.bed.length_m;
+  return Math.hypot(UNSEEN_FLOW * way * Math.sqrt(squares), wallSigma(model, state, way));
+}
+
+function wallSigma(model: StoreModel, state: StoreState, way: number): number {
+  const { wall } = model;
+  if (wall === null || state.wall === null) return 0;
+  const { charged, discharged } = referenceEnthalpies(model);
+  const beside = (state.tubes[wall.tube] as TubeState).enthalpy;
+  let apart = 0;
+  wall.layers.forEach(({ share }, l) => {
+    const own = state.wall?.enthalpy[l] as Float64Array;
+    let sum = 0;
+    for (let i = 0; i < own.length; i++) {
+      sum += Math.abs((own[i] as number) - (beside[i] as number));
+    }
+    apart += (share * sum) / own.length;
+  });
+  const last = wall.layers[wall.layers.length - 1]?.share ?? 0;
+  return Math.hypot(
+    (WALL_SIGMA * apart) / Math.abs(charged - discharged),
+    last * wall.flowSigma * way,
+  );
 }
 
 /** Energy-equivalent position of the store: the area-weighted mean of its streams' [m]. */

@@ -1,7 +1,13 @@
 import { type BedStep, bedSubstep, planSubsteps } from '../bed/kernel.js';
 import { type BedTables, enthalpyAt, temperatureAt } from '../bed/tables.js';
 import type { BedDefinition } from '../definitions.js';
-import type { TubeDrive, TubeModel, TubeScratch, TubeState } from './tube.js';
+import {
+  type TubeDrive,
+  type TubeModel,
+  type TubeScratch,
+  type TubeState,
+  tubeStep,
+} from './tube.js';
 
 /**
  * The rock at the wall that no thermocouple sees: it gives heat to the vessel's steel and through it
@@ -168,16 +174,7 @@ export function stepWall(
   scratch: TubeScratch,
 ): void {
   const { tables, layout } = tubeModel;
-  const further = (index: number): number => tube.further[index - layout.cells] as number;
-  const end = drive.massFlux_kg_m2s >= 0 ? 'charge_inlet' : 'discharge_inlet';
-  const whole: BedStep = {
-    massFlux_kg_m2s: drive.massFlux_kg_m2s * Math.exp(further(layout.flow)),
-    inlet_K: drive.inlet_K + further(layout.inlet[end]),
-    ambient_K: drive.ambient_K,
-    dt_s: drive.dt_s,
-    heatTransferFactor: Math.exp(further(layout.transfer)),
-    wallLoss_W_m3K: 0,
-  };
+  const whole: BedStep = { ...tubeStep(tubeModel, tube, drive), wallLoss_W_m3K: 0 };
   model.layers.forEach(({ flowFactor }, i) => {
     const layer = wall.enthalpy[i] as Float64Array;
     const own = { ...whole, massFlux_kg_m2s: whole.massFlux_kg_m2s * flowFactor };
@@ -188,7 +185,7 @@ export function stepWall(
       bedSubstep(tables, layer, part, scratch.probe);
       out += scratch.probe.outlet_K;
     }
-    wall.outlet_K[i] = out / substeps;
+    wall.outlet_K[i] = drive.massFlux_kg_m2s === 0 ? Number.NaN : out / substeps;
   });
   exchangeAtWall(model, tables, wall.enthalpy, wall.steel_K, tube.enthalpy, whole);
 }
