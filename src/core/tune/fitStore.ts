@@ -22,7 +22,7 @@ import {
 const COUNT = STORE_PARAMETERS.length;
 /** Noise of the first rounds over the last [-]: a front that stands elsewhere is drawn in step by step. */
 const ROUGH = [30, 5] as const;
-const MOST_ROUNDS = 16;
+const MOST_ROUNDS = 20;
 /** The noise is measured so often, then it stays: each change moves what it is measured by. */
 const MEASURED = 3;
 /** A round that moves nothing by more than this share of its sigma ends the search. */
@@ -36,7 +36,7 @@ const ODD_K = 3;
 const ODD_TIMES = 5;
 
 /** Cells of the fit's profiles: so many to a piece of rock at most, so that the scheme spreads no front. */
-const CELL_PIECES = 2.5;
+const CELL_PIECES = 3;
 const MOST_CELLS = 400;
 
 interface Guess {
@@ -101,7 +101,15 @@ export function fitStore(
     if (hats === null || round === ROUGH.length) hats = hatColumns(plan, data, at, guess.strings);
     const columns = storeColumns(plan, data, at, guess.strings, hats, estimator);
     const normals = data.map((one, k) =>
-      stringNormal(one, columns[k] as StringColumns, bins, s, noise_K * rough, estimator),
+      stringNormal(
+        one,
+        columns[k] as StringColumns,
+        bins,
+        s,
+        noise_K * rough,
+        rough <= 1,
+        estimator,
+      ),
     );
     const sum = assemble(normals, prior, guess.values, size);
     information = sum.information;
@@ -114,22 +122,25 @@ export function fitStore(
       converged = true;
       break;
     }
-    if (worst > 1 || measured >= MEASURED) continue;
+    // A faulty thermocouple may be what keeps the search from settling: look for it all the same.
+    const near = worst <= 1;
+    if (measured >= MEASURED || (!near && round <= ROUGH.length)) continue;
     const left = leftover(data, columns, normals, step, bins, s, noise_K, estimator);
-    measured++;
+    if (left.length === 0) continue;
     const typical = median(left.map((one) => one.rms_K));
     residual_K = Math.sqrt(mean(left.map((one) => one.rms_K ** 2)));
-    const odd = left.filter((one) => one.rms_K > ODD_K && one.rms_K > ODD_TIMES * typical);
-    for (const one of odd) {
-      const own = data[one.string] as StringData;
-      own.used[one.sensor] = false;
-      const id = own.string.thermocouples[one.sensor]?.id ?? '';
-      leftOut.push({ id, residual_K: one.rms_K });
-    }
-    if (odd.length > 0) {
+    // One at a time: it bends what its neighbours are held against.
+    const oddest = left.reduce((a, b) => (b.rms_K > a.rms_K ? b : a));
+    if (oddest.rms_K > ODD_K && oddest.rms_K > ODD_TIMES * typical) {
+      const own = data[oddest.string] as StringData;
+      own.used[oddest.sensor] = false;
+      const id = own.string.thermocouples[oddest.sensor]?.id ?? '';
+      leftOut.push({ id, residual_K: oddest.rms_K });
       measured = 0;
       continue;
     }
+    if (!near) continue;
+    measured++;
     noise_K = Math.max(
       LEAST_NOISE_K,
       Math.sqrt(mean(left.map((one) => one.even_K ** 2 * one.lasting))),

@@ -28,6 +28,7 @@ export const KEPT = STORE_PARAMETERS.length + 1;
  * that the cost is that of many small systems.
  *
  * @param noise_K noise of one bin's reading [K]
+ * @param doubting whether readings far off are taken for faults: not before the model nearly fits
  */
 export function stringNormal(
   data: StringData,
@@ -35,6 +36,7 @@ export function stringNormal(
   bins: readonly TuneBin[],
   s: number,
   noise_K: number,
+  doubting: boolean,
   estimator: EstimatorDefinition,
 ): StringNormal {
   const q = columns.columns.length;
@@ -54,8 +56,8 @@ export function stringNormal(
       const z = bins[b]?.readings[s]?.[data.first + j] as number;
       if (!Number.isFinite(z)) continue;
       const at = b * n + j;
-      const weight = rowWeight(columns.run, at, noise_K);
       const r = z - (columns.run.value[at] as number);
+      const weight = rowWeight(columns.run, at, noise_K, doubting ? r : 0, estimator);
       for (let c = 0; c < q; c++) row[c] = (columns.columns[c] as Float64Array)[at] as number;
       sensorRow(data, columns.run, b, j, estimator, own);
       for (let c = 0; c < q; c++) {

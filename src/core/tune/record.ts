@@ -46,6 +46,8 @@ export interface TuneRecord {
 
 /** Length of a bin [s]: a front moves some 4 cm meanwhile, a tenth of its width. */
 const BIN_S = 300;
+/** The same while standing, when nothing is quick [s]. */
+const STANDING_BIN_S = 900;
 /** A front that moved for this long without a known flow stands nobody knows where [s]. */
 const GAP_S = 900;
 
@@ -136,9 +138,7 @@ export function thin(state: Thinning, raw: Scan): void {
   }
   if (sign !== 0) state.flowing_s += dt_s;
   add(state, scan, dt_s, conditions, outlets);
-  if ((state.sums as Sums | null)?.dt_s ?? 0 >= BIN_S) {
-    if ((state.sums as Sums).dt_s >= BIN_S) closeBin(state);
-  }
+  if ((state.sums as Sums).dt_s >= (sign === 0 ? STANDING_BIN_S : BIN_S)) closeBin(state);
 }
 
 /** The longest stretch without a gap. */

@@ -39,6 +39,7 @@ export function sensorResiduals(
   const own = new Float64Array(p);
   return data.positions_m.map((_, j) => {
     const r = new Float64Array(bins.length).fill(Number.NaN);
+    const share = new Float64Array(bins.length);
     const D = new Float64Array(p * p);
     const d = new Float64Array(p);
     for (let i = 0; i < p; i++) D[i * p + i] = 1;
@@ -52,7 +53,8 @@ export function sensorResiduals(
         left -= (step[c] as number) * ((columns.columns[c] as Float64Array)[at] as number);
       }
       r[b] = left;
-      const weight = rowWeight(columns.run, at, noise_K);
+      const weight = rowWeight(columns.run, at, noise_K, left, estimator);
+      share[b] = noise_K * Math.sqrt(weight);
       count++;
       sensorRow(data, columns.run, b, j, estimator, own);
       for (let i = 0; i < p; i++) {
@@ -70,10 +72,8 @@ export function sensorResiduals(
       sensorRow(data, columns.run, b, j, estimator, own);
       for (let i = 0; i < p; i++) r[b] = (r[b] as number) - (x[i] as number) * (own[i] as number);
     }
-    // As of a reading that no front passes.
-    const even = r.map(
-      (value, b) => value * noise_K * Math.sqrt(rowWeight(columns.run, b * n + j, noise_K)),
-    );
+    // As of a reading that no front passes and no fault holds.
+    const even = r.map((value, b) => value * (share[b] as number));
     return { rms_K: rms(r), even_K: rms(even), lasting: lasting(even) };
   });
 }

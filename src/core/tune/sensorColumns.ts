@@ -4,10 +4,29 @@ import { NUISANCE } from './priors.js';
 import type { StringRun } from './simulate.js';
 import type { StringData } from './stringColumns.js';
 
-/** 1/variance of one bin's reading [1/K2]: noise, and what a passing front adds. */
-export function rowWeight(run: StringRun, at: number, noise_K: number): number {
-  const front = NUISANCE.front_m * (run.slope[at] as number);
-  return 1 / (noise_K * noise_K + front * front);
+/** A reading so many times further off than its class allows is a fault's, and fades from the sum. */
+const FAULT_TIMES = 4;
+/** Displacement of a front that a sound thermocouple may show against a model that nearly fits [m]. */
+const SOUND_M = 0.1;
+
+/**
+ * 1/variance of one bin's reading [1/K2]: noise, and what a passing front adds; times 1/(1 + (r/4s)^2)
+ * (Cauchy), s what a sound thermocouple may be off, so that stuck and burst ones pull at nothing.
+ *
+ * @param left_K residual r; 0 = believe the reading
+ */
+export function rowWeight(
+  run: StringRun,
+  at: number,
+  noise_K: number,
+  left_K: number,
+  estimator: EstimatorDefinition,
+): number {
+  const slope = run.slope[at] as number;
+  const front = NUISANCE.front_m * slope;
+  const sound = Math.hypot(noise_K, 2 * estimator.offset_sigma_K, SOUND_M * slope);
+  const far = left_K / (FAULT_TIMES * sound);
+  return 1 / ((noise_K * noise_K + front * front) * (1 + far * far));
 }
 
 const FIXED = 5;

@@ -49,10 +49,12 @@ export function tuneUnit(
   const priors = tunePriors(unit.estimator);
   const fits: StoreFit[] = [];
   for (const [s, store] of model.stores.entries()) {
-    const fit = fitStore(store, unit.estimator, priors, record.bins, s, (round) =>
-      onProgress(store.store.id, round),
+    const fit = fitOrNull(() =>
+      fitStore(store, unit.estimator, priors, record.bins, s, (round) =>
+        onProgress(store.store.id, round),
+      ),
     );
-    if (!fit.values.every(Number.isFinite)) return { refusal: 'cannot_follow' };
+    if (fit === null || !fit.values.every(Number.isFinite)) return { refusal: 'cannot_follow' };
     fits.push(fit);
   }
   const running = record.bins.filter((bin) => bin.flow_kg_s !== 0);
@@ -65,6 +67,16 @@ export function tuneUnit(
   const combined = combine(model.stores, fits, laws, work, priors);
   const evidence = model.stores.map((store, s) => evidenceOf(store, record, s));
   return { result: describe(model, record, fits, work, combined, priors, evidence) };
+}
+
+/** A system that is not positive definite comes of readings that no bed gives: null. */
+function fitOrNull(fit: () => StoreFit): StoreFit | null {
+  try {
+    return fit();
+  } catch (error) {
+    if (error instanceof RangeError) return null;
+    throw error;
+  }
 }
 
 function refuse(model: UnitModel, record: TuneRecord): TuneRefusal | null {
