@@ -70,9 +70,9 @@ export function tuneUnit(
 }
 
 /** A system that is not positive definite comes of readings that no bed gives: null. */
-function fitOrNull(fit: () => StoreFit): StoreFit | null {
+function fitOrNull(attempt: () => StoreFit): StoreFit | null {
   try {
-    return fit();
+    return attempt();
   } catch (error) {
     if (error instanceof RangeError) return null;
     throw error;
