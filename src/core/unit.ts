@@ -1,4 +1,5 @@
 import type { UnitDefinition } from './definitions.js';
+import { startHeatBalance } from './dispatch/heatBalance.js';
 import { startMachineFactor } from './dispatch/machineFactor.js';
 import { hoursOf } from './dispatch/unitHours.js';
 import type { DispatchAnswer, Estimate, ProfileView } from './estimate.js';
@@ -49,6 +50,7 @@ export function startUnit(unit: UnitDefinition): UnitState {
     stores: model.stores.map(startStore),
     views: model.stores.map(startViews),
     factors: { charge: startMachineFactor(), discharge: startMachineFactor() },
+    balances: model.stores.map(startHeatBalance),
     watch: startWatch(),
     seen_ms: null,
     mode: 'stand',

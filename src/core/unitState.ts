@@ -1,4 +1,5 @@
 import type { Direction, Mode } from './definitions.js';
+import type { HeatBalance } from './dispatch/heatBalance.js';
 import type { MachineFactor } from './dispatch/machineFactor.js';
 import type { ChargeState } from './dispatch/unitHours.js';
 import type { ConditionsState } from './track/conditions.js';
@@ -15,6 +16,8 @@ export interface UnitState {
   /** Front views and healthy twin of each store. */
   readonly views: StoreViews[];
   readonly factors: Record<Direction, MachineFactor>;
+  /** Heat balance of each store. */
+  readonly balances: HeatBalance[];
   readonly watch: WatchState;
   /** Source time of the last scan with any thermocouple reading. */
   seen_ms: number | null;

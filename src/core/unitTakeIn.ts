@@ -1,3 +1,4 @@
+import { type HeatBalance, startHeatBalance, stepHeatBalance } from './dispatch/heatBalance.js';
 import { type HeatCapacity, heatCapacities, withHeatCapacity } from './dispatch/heatCapacity.js';
 import { learnMachine } from './dispatch/unitHours.js';
 import type { FrontEstimate, FrontReason } from './estimate.js';
@@ -43,6 +44,7 @@ export function forget(model: UnitModel, state: UnitState): void {
     state.stores[s] = startStore(store);
     state.views[s] = startViews(store);
     state.unknownTravel_m[s] = 0;
+    state.balances[s] = startHeatBalance();
   });
   Object.assign(state.conditions, startConditions());
   state.charge = null;
@@ -91,6 +93,14 @@ export function takeIn(model: UnitModel, state: UnitState, raw: Scan): Taken {
     if (step === 'reacquired' || (step === 'updated' && conditions.flowKnown)) {
       state.unknownTravel_m[s] = 0;
     }
+    const known = conditions.flowKnown && !conditions.flowStandIn && step === 'updated';
+    stepHeatBalance(store, storeState, state.balances[s] as HeatBalance, energy, {
+      direction: known && drive !== null && conditions.mode !== 'stand' ? conditions.mode : null,
+      flow_kg_s: conditions.flow_kg_s,
+      inlet_K: drive?.inlet_K ?? Number.NaN,
+      ambient_K: conditions.ambient_K,
+      dt_s,
+    });
     const views = stepViews(
       store,
       storeState,

@@ -80,6 +80,14 @@ export function calibrate(model: UnitModel, state: UnitState, load: number): Cal
   const last: Direction =
     state.factors.discharge.age_s < state.factors.charge.age_s ? 'discharge' : 'charge';
   travel.forEach((f, s) => {
+    const runs = (['charge', 'discharge'] as const).flatMap((d) => {
+      const run = state.balances[s]?.last[d] ?? null;
+      return run === null ? [] : [{ d, ...run }];
+    });
+    for (const { d, log, variance } of runs) {
+      observe(g, row({ 0: 1, 1: loadOf(d), [2 + s]: -1 }), log, variance);
+    }
+    if (runs.length > 0) return;
     observe(g, row({ 0: 1, 1: loadOf(last), [2 + s]: -1 }), f.log, f.variance);
   });
   for (const d of ['charge', 'discharge'] as const) {

@@ -100,8 +100,8 @@ export function computeHours(input: HoursInput, power_W: number): DispatchAnswer
 
 /**
  * Where no rule was broken within the time rolled, that time. Where an outlet is beyond its limit as
- * soon as its rule holds, nothing is firm: a plant may refuse to start, or run until its plenum is
- * swept, or as long as the rules wait at most.
+ * soon as its rule holds, nothing is firm: a plant may refuse to start, or run at least until its
+ * plenum is swept and at most as long as the rules wait; the middle of the two is p50.
  */
 function certain(result: RolloutResult, most_s: number): Quantiles {
   if (!Number.isFinite(result.end_s)) {
@@ -109,7 +109,8 @@ function certain(result: RolloutResult, most_s: number): Quantiles {
     return { p90: hours, p50: hours, p10: hours };
   }
   if (result.trips_s === 0 || result.ends_by === 'flow') return { p90: 0, p50: 0, p10: 0 };
-  return { p90: 0, p50: result.trips_s / 3600, p10: SWEEP_MOST_S / 3600 };
+  const middle_s = (Math.min(result.trips_s, SWEEP_MOST_S) + SWEEP_MOST_S) / 2;
+  return { p90: 0, p50: middle_s / 3600, p10: SWEEP_MOST_S / 3600 };
 }
 
 /**

@@ -1,0 +1,127 @@
+import type { Direction } from '../definitions.js';
+import { referenceEnthalpies, type StoreEnergy } from '../track/storeEnergy.js';
+import { meanTemperatures, mixedOutlet } from '../track/storeEstimate.js';
+import type { StoreModel, StoreState } from '../track/storeTracker.js';
+
+/** ln of a ratio and its variance. */
+export interface Measured {
+  readonly log: number;
+  readonly variance: number;
+}
+
+/** Heat balance of a store over the present run in one direction, and what the last runs gave. */
+export interface HeatBalance {
+  direction: Direction | null;
+  /** State of charge at the run's start and its sigma. */
+  soc: number;
+  soc_sigma: number;
+  /** Heat in the wall's steel then, and since what the metered gas has brought and what was lost [J]. */
+  steel: number;
+  metered: number;
+  lost: number;
+  readonly last: Record<Direction, Measured | null>;
+}
+
+export function startHeatBalance(): HeatBalance {
+  return {
+    direction: null,
+    soc: 0,
+    soc_sigma: 0,
+    steel: 0,
+    metered: 0,
+    lost: 0,
+    last: { charge: null, discharge: null },
+  };
+}
+
+/** A run tells something once the state of charge has changed by so much. */
+const LEAST_CHANGE = 0.15;
+/** Before that it begins anew where the state of charge has become so much surer. */
+const SURER = 0.8;
+/** What the balance leaves out: the steel of the ends (0.2 % of a full store), a fifth of the losses. */
+const LEFT_OUT = 0.004;
+/** Thermometers at the two ends: +/-1 K each. */
+const GAS_SIGMA_K = 0.7;
+
+export interface BalanceStep {
+  /** null where it stands or the flow is not known. */
+  readonly direction: Direction | null;
+  /** Metered, of either sign [kg/s]. */
+  readonly flow_kg_s: number;
+  readonly inlet_K: number;
+  readonly ambient_K: number;
+  readonly dt_s: number;
+}
+
+/**
+ * One scan of a store's heat balance. Over a run in one direction
+ *
+ *   f = (E_full (soc_1 - soc_0) + what the wall's steel took + losses)/(integral of m cp (T_in - T_out) dt)
+ *
+ * is the travel per metered kilogram over that of the model, as the tubes' flow factors are: these
+ * follow the last hour or so, the balance weighs the whole run. Its variance is that of the two
+ * states of charge and of the gas temperatures.
+ */
+export function stepHeatBalance(
+  model: StoreModel,
+  state: StoreState,
+  balance: HeatBalance,
+  energy: StoreEnergy,
+  step: BalanceStep,
+): void {
+  const { direction } = step;
+  const change = energy.soc - balance.soc;
+  const surer = Math.abs(change) < LEAST_CHANGE && energy.soc_sigma < SURER * balance.soc_sigma;
+  if (direction === null || direction !== balance.direction || surer) {
+    balance.direction = direction;
+    balance.soc = energy.soc;
+    balance.soc_sigma = energy.soc_sigma;
+    balance.steel = steelOf(model, state);
+    balance.metered = 0;
+    balance.lost = 0;
+    return;
+  }
+  const outlet = mixedOutlet(model, state);
+  if (!Number.isFinite(outlet)) return;
+  const { bed } = model.store;
+  const { charged, discharged } = referenceEnthalpies(model);
+  const full_J = (charged - discharged) * bed.area_m2 * bed.length_m;
+  const cp = bed.fluid.heatCapacity((step.inlet_K + outlet) / 2);
+  const heat = Math.abs(step.flow_kg_s) * cp * (step.inlet_K - outlet);
+  balance.metered += heat * step.dt_s;
+  balance.lost += lossOf(model, state, step.ambient_K) * step.dt_s;
+  if (Math.abs(change) < LEAST_CHANGE) return;
+  const beside = balance.lost + steelOf(model, state) - balance.steel;
+  const ratio = (change * full_J + beside) / balance.metered;
+  if (!(ratio > 0.2 && ratio < 5)) return;
+  const span = model.store.reference_hot_K - model.store.reference_cold_K;
+  const variance =
+    (energy.soc_sigma ** 2 + balance.soc_sigma ** 2) / change ** 2 +
+    (GAS_SIGMA_K / span) ** 2 +
+    LEFT_OUT ** 2;
+  balance.last[direction] = { log: Math.log(ratio), variance };
+}
+
+/** Heat in the wall's steel [J] above 0 K, 0 where none is modelled. */
+function steelOf(model: StoreModel, state: StoreState): number {
+  const { bed } = model.store;
+  const steel = state.wall?.steel_K;
+  if (steel === undefined) return 0;
+  const mean = steel.reduce((sum, T) => sum + T, 0) / steel.length;
+  return mean * (bed.wall_capacity_J_m2K ?? 0) * Math.PI * bed.diameter_m * bed.length_m;
+}
+
+/** Heat lost through mantle and ends, as modelled [W]. */
+function lossOf(model: StoreModel, state: StoreState, ambient_K: number): number {
+  const { bed } = model.store;
+  const profile = meanTemperatures(model, state);
+  const beside = state.wall?.steel_K ?? profile;
+  const mantle = beside.reduce((sum, T) => sum + T, 0) / beside.length - ambient_K;
+  const ends =
+    bed.end_loss_W_m2K.charge_inlet * ((profile[0] as number) - ambient_K) +
+    bed.end_loss_W_m2K.discharge_inlet * ((profile[profile.length - 1] as number) - ambient_K);
+  return (
+    bed.loss_factor *
+    (bed.wall_loss_W_m2K * Math.PI * bed.diameter_m * bed.length_m * mantle + bed.area_m2 * ends)
+  );
+}
