@@ -18,20 +18,32 @@ export interface Start {
   guessed_m: number;
 }
 
+/** What leaps by more than this share of what was guessed in one scan is the sensor, not a front. */
+const LEAP_SHARE = 0.1;
+
 /**
  * Widens a tube where readings that its guessed profile may have had stand outside the gate: by what
  * they are off, over half of the way that was guessed. Call before judging.
  *
  * @returns true where a covariance was changed
  */
-export function widenGuesses(model: StoreModel, state: StoreState, work: JudgeWork): boolean {
+export function widenGuesses(
+  model: StoreModel,
+  state: StoreState,
+  work: JudgeWork,
+  drive: TubeDrive | null,
+): boolean {
   let changed = false;
+  // Other rock comes only with the gas.
+  if (drive === null || drive.massFlux_kg_m2s === 0) return false;
   for (const c of work.candidates) {
     const memory = state.sensors[c.tube]?.[c.sensor] as SensorMemory;
     if (memory.guessed_m === 0 || !isBelieved(memory)) continue;
     const off = Math.abs(innovation(c));
     const room = GATE_SIGMAS * c.sigma_K;
     if (!(off > room)) continue;
+    const leap = Math.max(room, LEAP_SHARE * (memory.high_K - memory.low_K));
+    if (memory.outside > 0 || Math.abs(c.value_K - memory.before_K) > leap) continue;
     if (c.value_K < memory.low_K - room || c.value_K > memory.high_K + room) continue;
     const tube = model.tubes[c.tube] as TubeModel;
     widen(tube, state.tubes[c.tube] as TubeState, c.sensor, off, memory.guessed_m / 2);

@@ -1,4 +1,4 @@
-import { judgeSensor, type SensorMemory } from './judge.js';
+import { isBelieved, judgeSensor, type SensorMemory } from './judge.js';
 import { type StartReading, startTube } from './start.js';
 import type { StoreModel, StoreState } from './storeTracker.js';
 import type { TubeState } from './tube.js';
@@ -21,9 +21,10 @@ export function usableReadings(
   const out: { tube: number; sensor: number; position_m: number; value_K: number }[] = [];
   model.tubes.forEach((tube, k) => {
     tube.string.thermocouples.forEach((thermocouple, s) => {
-      const value = values[model.channels[k]?.[s] as number] as number;
-      const verdict = state.sensors[k]?.[s]?.verdict ?? null;
-      if (verdict !== null && verdict !== 'open') return;
+      const memory = state.sensors[k]?.[s] as SensorMemory;
+      // Of a group at fault, what its step leaves.
+      const value = (values[model.channels[k]?.[s] as number] as number) - memory.shift_K;
+      if (!isBelieved(memory) && memory.verdict !== 'open') return;
       if (!(value > low && value < high)) return;
       out.push({ tube: k, sensor: s, position_m: thermocouple.position_m, value_K: value });
     });

@@ -53,10 +53,7 @@ export function updateStore(
     );
   };
   // First the common cause (a card, a cold junction), else half a store's fault passes for a lost estimate.
-  const stepped = judgeGroups(model, state, work, usable, time_ms);
-  if (stepped || widenGuesses(model, state, work)) {
-    for (let k = 0; k < model.tubes.length; k++) predictTubeReadings(model, state, work, k);
-  }
+  if (judgeGroups(model, state, work, usable, time_ms)) predictReadings(model, state, work);
   const sound = candidates.filter(usable);
   const outside = sound.filter((c) => Math.abs(innovation(c)) > GATE_SIGMAS * c.sigma_K);
   const least = Math.max(2, Math.min(MISS_LEAST, sound.length));
@@ -68,6 +65,7 @@ export function updateStore(
     return 'reacquired';
   }
   state.missed = 0;
+  if (widenGuesses(model, state, work, drive)) predictReadings(model, state, work);
   const before = candidates.map((c) => memoryOf(state, c).verdict);
   const accepted = judgeAll(model, state, work, drive, time_ms);
   model.tubes.forEach((tube, k) => {
@@ -136,6 +134,10 @@ function followSurprise(tube: TubeState, sound: readonly Candidate[]): void {
   tube.surprise += (sum / sound.length - tube.surprise) / SURPRISE_SCANS;
 }
 
+function predictReadings(model: StoreModel, state: StoreState, work: JudgeWork): void {
+  for (let k = 0; k < model.tubes.length; k++) predictTubeReadings(model, state, work, k);
+}
+
 /** Predictions of every thermocouple, missing ones included, with its reading. */
 function predictAll(
   model: StoreModel,
@@ -145,7 +147,7 @@ function predictAll(
   dt_s: number,
 ): JudgeWork {
   const work = judgeWork(model);
-  for (let k = 0; k < model.tubes.length; k++) predictTubeReadings(model, state, work, k);
+  predictReadings(model, state, work);
   for (const c of work.candidates) {
     const memory = memoryOf(state, c);
     c.value_K = (values[model.channels[c.tube]?.[c.sensor] as number] as number) - memory.shift_K;
