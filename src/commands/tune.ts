@@ -73,12 +73,13 @@ async function tune(options: TuneOptions): Promise<void> {
     );
   }
   if (out !== undefined) write(out, fragment);
-  if (options.json) process.stdout.write(`${JSON.stringify({ ...result, fragment })}\n`);
-  else {
-    process.stdout.write(`${tuneText(result)}\n`);
-    if (out === undefined) process.stdout.write(`\nFor the site file:\n\n${fragment}`);
-    else process.stderr.write(`fragment of the site file written to ${out}\n`);
+  if (options.json) {
+    process.stdout.write(`${JSON.stringify({ ...result, fragment })}\n`);
+    return;
   }
+  process.stdout.write(`${tuneText(result)}\n`);
+  if (out === undefined) process.stdout.write(`\nFor the site file:\n\n${fragment}`);
+  else process.stderr.write(`fragment of the site file written to ${out}\n`);
 }
 
 function write(path: string, text: string): void {

@@ -337,3 +337,27 @@ describe('efficiency table', () => {
     expect(() => createMachine({ ...table, outlet_K: [], efficiency: [] })).toThrow(/got 0/);
   });
 });
+
+describe('tuned work factors', () => {
+  it('scale the electricity of their direction alone, and power and flow stay inverse', () => {
+    const plain = createMachine(cycle({ auxiliary_running_W: 3e4 }));
+    const tuned = createMachine(
+      cycle({ auxiliary_running_W: 3e4, work_factor: { charge: 0.95, discharge: 1.06 } }),
+    );
+    for (const [way, factor, outlets] of [
+      ['charge', 0.95, { hot_K: 298, cold_K: 298 }],
+      ['discharge', 1.06, { hot_K: 733, cold_K: 150 }],
+    ] as const) {
+      const a = plain.operate(way, outlets, AMBIENT);
+      const b = tuned.operate(way, outlets, AMBIENT);
+      expect(b.specificWork_J_kg / a.specificWork_J_kg).toBeCloseTo(factor, 12);
+      expect(b.inlets).toEqual(a.inlets);
+      const power_W = tuned.powerForFlow(way, 15, outlets, AMBIENT);
+      const flow = tuned.flowForPower(way, power_W, outlets, AMBIENT);
+      expect(flow).toEqual({ flow_kg_s: expect.closeTo(15, 9) });
+    }
+    expect(() => createMachine(cycle({ work_factor: { charge: 0, discharge: 1 } }))).toThrow(
+      'work_factor.charge',
+    );
+  });
+});
