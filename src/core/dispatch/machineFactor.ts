@@ -45,28 +45,31 @@ const FLOW_MEMORY_S = 4 * 3600;
  *
  * @param ratio measured over modelled power per metered kilogram; NaN = no news
  * @param flow_kg_s metered flow of the scan
+ * @returns the variance of a change of meter or machine, 0 = none: what was learned before, in the
+ *   other direction too, is that much less sure
  */
 export function stepMachineFactor(
   state: MachineFactor,
   ratio: number,
   dt_s: number,
   flow_kg_s: number,
-): void {
+): number {
   state.steady_s += dt_s;
-  if (!(ratio > 0.2 && ratio < 5) || state.steady_s < SETTLE_S) return;
+  if (!(ratio > 0.2 && ratio < 5) || state.steady_s < SETTLE_S) return 0;
   const noise = SCATTER ** 2 * Math.max(1, (2 * CORRELATION_S) / dt_s);
   state.age_s = 0;
   if (state.variance === null) {
     state.log = Math.log(ratio);
     state.variance = noise;
     state.flow_kg_s = flow_kg_s;
-    return;
+    return 0;
   }
   const innovation = Math.log(ratio) - state.log;
   const scale = Math.sqrt(state.variance + SCATTER ** 2);
   const share = 1 - Math.exp(-dt_s / CORRELATION_S);
   state.surprise += share * (innovation / scale - state.surprise);
-  if (Math.abs(state.surprise) > CHANGED) {
+  const changed = Math.abs(state.surprise) > CHANGED;
+  if (changed) {
     state.variance += innovation ** 2;
     state.surprise = 0;
   }
@@ -75,6 +78,7 @@ export function stepMachineFactor(
   state.variance *= 1 - gain;
   state.flow_kg_s +=
     Math.max(gain, 1 - Math.exp(-dt_s / FLOW_MEMORY_S)) * (flow_kg_s - state.flow_kg_s);
+  return changed ? innovation ** 2 : 0;
 }
 
 /** Time passes, in whatever mode: the factor walks. */

@@ -6,6 +6,7 @@ import type { Conditions } from '../track/conditions.js';
 import type { UnitModel } from '../unitModel.js';
 import type { UnitState } from '../unitState.js';
 import { calibrate } from './calibration.js';
+import { startHeatBalance } from './heatBalance.js';
 import { centralHours, computeHours, type HoursInput } from './hours.js';
 import { ageMachineFactor, stepMachineFactor } from './machineFactor.js';
 import { machineSpread, partLoadFactor } from './machineSpread.js';
@@ -41,7 +42,15 @@ export function learnMachine(
   const sign = direction === 'charge' ? -1 : 1;
   const gross = Math.abs(conditions.power_W) + sign * machine.auxiliary_running_W;
   const model_J_kg = work * partLoadFactor(machineSpread(model.unit), direction, flow);
-  stepMachineFactor(state.factors[direction], gross / (flow * model_J_kg), dt_s, flow);
+  const ratio = gross / (flow * model_J_kg);
+  const change = stepMachineFactor(state.factors[direction], ratio, dt_s, flow);
+  if (change === 0) return;
+  // A meter that steps is in all that was metered so far.
+  const other = state.factors[direction === 'charge' ? 'discharge' : 'charge'];
+  if (other.variance !== null) other.variance += change;
+  state.balances.forEach((_, s) => {
+    state.balances[s] = startHeatBalance();
+  });
 }
 
 /** What hours at a power are computed from, in the unit's present state. */
