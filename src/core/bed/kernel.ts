@@ -45,6 +45,14 @@ export interface BedWork {
   readonly conductivity: Float64Array;
   /** Gas-to-rock lag G cf/hv [m] (unsigned), 0 while standing. */
   readonly gasLag_m: Float64Array;
+  /** a = 1 - exp(-n), p, and d ln hv/d ln G; 1 where the conductivity stands at its least. */
+  readonly relaxed: Float64Array;
+  readonly exchange: Float64Array;
+  readonly filmSlope: Float64Array;
+  readonly sharpest: Uint8Array;
+  /** Scratch of `parameterColumns`. */
+  readonly slopeFlow: Float64Array;
+  readonly slopeTransfer: Float64Array;
   /** Mean temperature of the gas leaving the tube during the step [K]; NaN while standing. */
   outlet_K: number;
   /** Enthalpy leaving and entering per area [J/m2], and losses [J/m2]. */
@@ -63,6 +71,12 @@ export function createBedWork(cells: number): BedWork {
     fluidHeatCapacity: new Float64Array(cells),
     conductivity: new Float64Array(cells),
     gasLag_m: new Float64Array(cells),
+    relaxed: new Float64Array(cells),
+    exchange: new Float64Array(cells),
+    filmSlope: new Float64Array(cells),
+    sharpest: new Uint8Array(cells),
+    slopeFlow: new Float64Array(cells),
+    slopeTransfer: new Float64Array(cells),
     outlet_K: Number.NaN,
     gasIn_J_m2: 0,
     gasOut_J_m2: 0,
@@ -172,8 +186,10 @@ function prepare(tables: BedTables, enthalpy: Float64Array, step: BedStep, work:
     }
     const cf = tables.fluidHeatCapacity[s] as number;
     work.equilibrium[i] = (tables.fluidEnthalpy[s] as number) + ((scaled - s) * cf * tables.dH) / c;
-    const film = (tables.filmStill[s] as number) + (tables.filmFlow[s] as number) * flux06;
-    const hv = (surface * film) / (1 + film * (tables.particleResistance[s] as number));
+    const moving = (tables.filmFlow[s] as number) * flux06;
+    const film = (tables.filmStill[s] as number) + moving;
+    const inside = 1 + film * (tables.particleResistance[s] as number);
+    const hv = (surface * film) / inside;
     const lag = (flux * cf) / hv;
     const n = dx / lag;
     const a = 1 - Math.exp(-n);
@@ -183,11 +199,16 @@ function prepare(tables: BedTables, enthalpy: Float64Array, step: BedStep, work:
     work.pickup[i] = a * relax;
     work.fluidHeatCapacity[i] = cf;
     work.gasLag_m[i] = lag;
+    work.relaxed[i] = a;
+    work.exchange[i] = p;
+    work.filmSlope[i] = (0.6 * moving) / (film * inside);
     const net =
       (tables.stagnant[s] as number) +
       disperse * cf -
       numericalConductivity(flux * cf * dx, n, a, p);
-    work.conductivity[i] = Math.max(net, -SHARPEN * flux * cf * lag);
+    const least = -SHARPEN * flux * cf * lag;
+    work.sharpest[i] = net < least ? 1 : 0;
+    work.conductivity[i] = Math.max(net, least);
   }
 }
 

@@ -6,6 +6,7 @@ import {
   planSubsteps,
   wallLossPerVolume,
 } from '../bed/kernel.js';
+import { parameterColumns } from '../bed/parameterTangent.js';
 import { type BedTables, enthalpyAt, temperatureAt } from '../bed/tables.js';
 import {
   applyTangent,
@@ -123,8 +124,6 @@ export interface TubeDrive {
   readonly standing_K?: Readonly<Record<'charge_inlet' | 'discharge_inlet', number>>;
 }
 
-/** Relative step of the finite differences that form the columns of flow and transfer factor. */
-const PROBE = 1e-4;
 /** Step of the leak's column, as a share of its sigma. */
 const LEAK_PROBE = 0.1;
 
@@ -184,24 +183,7 @@ export function predictTube(
   const { work, tangent } = scratch;
   let gasOut = 0;
   for (let n = 0; n < substeps; n++) {
-    if (flowing) {
-      const flux = step.massFlux_kg_m2s * (1 + PROBE);
-      const factor = step.heatTransferFactor * (1 + PROBE);
-      probeColumn(
-        tables,
-        state.enthalpy,
-        { ...step, massFlux_kg_m2s: flux },
-        scratch,
-        scratch.flowColumn,
-      );
-      probeColumn(
-        tables,
-        state.enthalpy,
-        { ...step, heatTransferFactor: factor },
-        scratch,
-        scratch.transferColumn,
-      );
-    } else if (leaks) {
+    if (leaks) {
       const flux = step.massFlux_kg_m2s + (step.massFlux_kg_m2s >= 0 ? probe : -probe);
       probeColumn(
         tables,
@@ -214,8 +196,8 @@ export function predictTube(
     bedSubstep(tables, state.enthalpy, step, work);
     gasOut += work.outlet_K;
     if (flowing) {
-      finishColumn(tables, state.enthalpy, scratch.flowColumn, PROBE);
-      finishColumn(tables, state.enthalpy, scratch.transferColumn, PROBE);
+      const { flowColumn, transferColumn } = scratch;
+      parameterColumns(tables, state.enthalpy, step, work, flowColumn, transferColumn);
     } else if (leaks) {
       const sign = step.massFlux_kg_m2s >= 0 ? 1 : -1;
       finishColumn(tables, state.enthalpy, scratch.leakColumn, sign * probe);
