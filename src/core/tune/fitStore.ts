@@ -1,25 +1,17 @@
 import type { EstimatorDefinition } from '../definitions.js';
 import type { StoreModel } from '../track/storeTracker.js';
-import { STORE_PARAMETERS, type StoreFit } from './fitTypes.js';
+import { advance, assemble, COUNT, type Guess, partOf, priorOf } from './fitStep.js';
+import type { StoreFit } from './fitTypes.js';
 import { inverse, solve } from './linear.js';
 import { KEPT, type StringNormal, stringNormal } from './normal.js';
-import { JUNCTION, NUISANCE, type TunePriors } from './priors.js';
+import { JUNCTION, type TunePriors } from './priors.js';
 import type { TuneBin } from './record.js';
 import { type SensorResidual, sensorResiduals } from './residuals.js';
 import { ringsOf } from './rings.js';
 import type { RunPlan, StoreGuess } from './simulate.js';
-import {
-  type HatColumns,
-  hatColumns,
-  type StringColumns,
-  type StringData,
-  type StringState,
-  startStringState,
-  storeColumns,
-  stringData,
-} from './stringColumns.js';
+import { type HatColumns, hatColumns, type StringColumns, storeColumns } from './stringColumns.js';
+import { type StringData, startStringState, stringData } from './stringData.js';
 
-const COUNT = STORE_PARAMETERS.length;
 /** Noise of the first rounds over the last [-]: a front that stands elsewhere is drawn in step by step. */
 const ROUGH = [30, 5] as const;
 const MOST_ROUNDS = 20;
@@ -27,8 +19,6 @@ const MOST_ROUNDS = 20;
 const MEASURED = 3;
 /** A round that moves nothing by more than this share of its sigma ends the search. */
 const SETTLED = 0.05;
-/** Largest step of a parameter in one round. */
-const LARGEST = [0.5, 0.7, 0.7, 0.5, 5, 5, 0.02, 60, 0.5, 0.1] as const;
 /** Rounding of the model itself: below this nothing is believed of a reading [K]. */
 const LEAST_NOISE_K = 0.02;
 /** A thermocouple that leaves this much, and so many times more than its fellows, is left out. */
@@ -38,11 +28,6 @@ const ODD_TIMES = 5;
 /** Cells of the fit's profiles: so many to a piece of rock at most, so that the scheme spreads no front. */
 const CELL_PIECES = 3;
 const MOST_CELLS = 400;
-
-interface Guess {
-  readonly values: Float64Array;
-  readonly strings: StringState[];
-}
 
 /**
  * Fits one store's parameters to a recording: output error, that is, the bed model is driven by the
@@ -170,114 +155,6 @@ function storeGuess(v: Float64Array): StoreGuess {
     lag_s: v[7] as number,
     wallSteel: v[8] as number,
   };
-}
-
-interface Prior {
-  readonly mean: Float64Array;
-  readonly sigma: Float64Array;
-}
-
-function priorOf(
-  store: StoreModel,
-  estimator: EstimatorDefinition,
-  priors: TunePriors,
-  bins: readonly TuneBin[],
-  s: number,
-  size: number,
-): Prior {
-  const mean = new Float64Array(size);
-  mean[3] = JUNCTION.share;
-  mean[7] = JUNCTION.lag_s;
-  const measured = (sign: number) =>
-    bins.every((bin) => Math.sign(bin.flow_kg_s) !== sign || bin.inletMeasured[s]);
-  const inlet = (sign: number) => (measured(sign) ? estimator.inlet_sigma_K : ASSUMED_INLET_K);
-  const flow = Math.hypot(priors.meter, priors.capacity);
-  const sigma = Float64Array.from([
-    priors.transfer,
-    priors.conductivity,
-    priors.loss,
-    JUNCTION.shareSigma,
-    inlet(1),
-    inlet(-1),
-    NUISANCE.meterSlope,
-    JUNCTION.lagSigma_s,
-    NUISANCE.wallSteel,
-    ...store.store.strings.map(() => flow),
-  ]).map((one) => Math.max(1e-6, one));
-  return { mean, sigma: sigma.subarray(0, size) };
-}
-
-/** Sigma of an inlet that the machine's model stands in for [K], as in the tracker. */
-const ASSUMED_INLET_K = 15;
-
-/** Sum of the strings' normal equations over [store parameters | flow of each string], with priors. */
-function assemble(
-  normals: readonly StringNormal[],
-  prior: Prior,
-  values: Float64Array,
-  size: number,
-): { information: Float64Array; right: Float64Array } {
-  const information = new Float64Array(size * size);
-  const right = new Float64Array(size);
-  for (let i = 0; i < size; i++) {
-    const precision = 1 / (prior.sigma[i] as number) ** 2;
-    information[i * size + i] = precision;
-    right[i] = precision * ((prior.mean[i] as number) - (values[i] as number));
-  }
-  normals.forEach((one, k) => {
-    const place = (c: number) => (c < COUNT ? c : COUNT + k);
-    for (let c = 0; c < KEPT; c++) {
-      const r = place(c);
-      right[r] = (right[r] as number) + (one.right[c] as number);
-      for (let e = 0; e < KEPT; e++) {
-        const at = r * size + place(e);
-        information[at] = (information[at] as number) + (one.information[c * KEPT + e] as number);
-      }
-    }
-  });
-  return { information, right };
-}
-
-/** The part of a step that is a string's: store parameters and its own flow. */
-function partOf(step: Float64Array, k: number): Float64Array {
-  const part = new Float64Array(KEPT);
-  part.set(step.subarray(0, COUNT));
-  part[COUNT] = step[COUNT + k] as number;
-  return part;
-}
-
-/** Takes a step, shortened where it is too long to be believed; returns the largest in sigmas. */
-function advance(
-  guess: Guess,
-  step: Float64Array,
-  normals: readonly StringNormal[],
-  data: readonly StringData[],
-  information: Float64Array,
-  size: number,
-): number {
-  let share = 1;
-  for (let i = 0; i < size; i++) {
-    const most = LARGEST[Math.min(i, COUNT)] as number;
-    share = Math.min(share, most / Math.max(1e-12, Math.abs(step[i] as number)));
-  }
-  const covariance = inverse(information, size);
-  let worst = 0;
-  for (let i = 0; i < size; i++) {
-    const sigma = Math.sqrt(covariance[i * size + i] as number);
-    worst = Math.max(worst, Math.abs(step[i] as number) / sigma);
-    guess.values[i] = (guess.values[i] as number) + share * (step[i] as number);
-  }
-  data.forEach((one, k) => {
-    const own = (normals[k] as StringNormal).own(partOf(step, k));
-    const tube = guess.strings[k] as StringState;
-    tube.flow = guess.values[COUNT + k] as number;
-    tube.transfer += share * (own[0] as number);
-    tube.conductivity += share * (own[1] as number);
-    for (let h = 0; h < one.hatSigma_K.length; h++) {
-      tube.hats[h] = (tube.hats[h] as number) + share * (own[2 + h] as number);
-    }
-  });
-  return worst;
 }
 
 function leftover(

@@ -3,7 +3,8 @@ import { STORE_PARAMETERS } from './fitTypes.js';
 import { backward, choleskyInPlace, forward } from './linear.js';
 import type { TuneBin } from './record.js';
 import { rowWeight, sensorRow, sensorSize } from './sensorColumns.js';
-import type { StringColumns, StringData } from './stringColumns.js';
+import type { StringColumns } from './stringColumns.js';
+import type { StringData } from './stringData.js';
 
 /** Normal equations of one string after its nuisance was eliminated, and the way back to it. */
 export interface StringNormal {

@@ -3,7 +3,8 @@ import { solve } from './linear.js';
 import { KEPT } from './normal.js';
 import type { TuneBin } from './record.js';
 import { rowWeight, sensorRow, sensorSize } from './sensorColumns.js';
-import type { StringColumns, StringData } from './stringColumns.js';
+import type { StringColumns } from './stringColumns.js';
+import type { StringData } from './stringData.js';
 
 /** What one thermocouple leaves once all was fitted: rms [K], and over how many bins it lasts. */
 export interface SensorResidual {

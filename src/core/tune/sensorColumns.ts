@@ -2,7 +2,7 @@ import type { EstimatorDefinition } from '../definitions.js';
 import { ZERO_CELSIUS_K } from '../units.js';
 import { NUISANCE } from './priors.js';
 import type { StringRun } from './simulate.js';
-import type { StringData } from './stringColumns.js';
+import type { StringData } from './stringData.js';
 
 /** A reading so many times further off than its class allows is a fault's, and fades from the sum. */
 const FAULT_TIMES = 4;
