@@ -133,6 +133,7 @@ function enteringGas(
   );
 }
 
+/** Sums of a bin that holds nothing yet. */
 export function emptySums(model: UnitModel): Sums {
   const sensors = (s: number) =>
     (model.stores[s]?.channels ?? []).reduce((n, r) => n + r.length, 0);

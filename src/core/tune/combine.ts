@@ -23,6 +23,7 @@ export const STORE = {
   capacity: 4,
   size: 5,
 } as const;
+/** First place of store s in the combined values. */
 export const placeOfStore = (s: number): number => UNIT.size + s * STORE.size;
 
 /** ln hv by ln G, and hv/C [1/s], of a store's bed at the mean flow: means over its front. */

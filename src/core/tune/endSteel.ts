@@ -4,6 +4,7 @@ import type { StoreModel } from '../track/storeTracker.js';
 /** Temperature of plenum and lid steel at both ends of a store [K]; NaN before anything was read. */
 export type EndSteel = Record<StoreEnd, number>;
 
+/** Steel of which nothing is known yet. */
 export function startEndSteel(): EndSteel {
   return { charge_inlet: Number.NaN, discharge_inlet: Number.NaN };
 }

@@ -18,11 +18,20 @@ export interface Guess {
 
 /** Largest step of a parameter in one round. */
 const LARGEST = [0.5, 0.7, 0.7, 0.5, 5, 5, 0.02, 60, 0.5, 0.1] as const;
+
+/** Mean and sigma of each parameter before the recording, in the order of the values. */
 export interface Prior {
   readonly mean: Float64Array;
   readonly sigma: Float64Array;
 }
 
+/**
+ * The prior of a store's fit: factors as configured, inlets by their sensors (or the machine's model
+ * where the gas was not measured in some bin), flows by meter and heat capacity together.
+ *
+ * @param s index of the store in the bins
+ * @param size parameters of the store and one flow per string
+ */
 export function priorOf(
   store: StoreModel,
   estimator: EstimatorDefinition,

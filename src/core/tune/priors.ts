@@ -23,6 +23,7 @@ const CONDUCTIVITY_SIGMA = 0.4;
 /** ln of the losses of a vessel as built against its insulation as drawn: a factor of 1.6, judgement. */
 const LOSS_SIGMA = 0.5;
 
+/** Priors of a unit's factors. */
 export function tunePriors(estimator: EstimatorDefinition): TunePriors {
   return {
     transfer: estimator.heat_transfer_factor_sigma,

@@ -30,6 +30,7 @@ export interface TuneBin {
   readonly since_s: number;
 }
 
+/** A thinned recording: bins of one stretch without a gap. */
 export interface TuneRecord {
   readonly bins: readonly TuneBin[];
   readonly from_ms: number;
@@ -63,6 +64,7 @@ export interface Thinning {
   readonly done: TuneBin[][];
 }
 
+/** Begins to thin a recording of a unit. */
 export function startThinning(model: UnitModel): Thinning {
   return {
     model,

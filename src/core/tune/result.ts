@@ -48,6 +48,7 @@ export interface TuneFitQuality {
   readonly left_out: readonly { readonly id: string; readonly residual_K: number }[];
 }
 
+/** Everything that tuning one unit gives. */
 export interface TuneResult {
   readonly unit: string;
   readonly from: string;
@@ -64,6 +65,7 @@ export interface TuneResult {
   readonly configure: TuneConfigure;
 }
 
+/** What goes into the configuration: factors as a whole, to be written there together. */
 export interface TuneConfigure {
   readonly work_factor: Readonly<Record<'charge' | 'discharge', number | null>>;
   readonly stores: readonly {

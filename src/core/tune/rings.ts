@@ -24,6 +24,7 @@ const FIRST = 0.04;
 const GROWTH = 1.6;
 const MOST = 6;
 
+/** Lays the rings of a store out by its strings' radii and area shares. */
 export function ringsOf(store: StoreModel): Rings {
   const { strings, bed } = store.store;
   const radius = bed.diameter_m / 2;

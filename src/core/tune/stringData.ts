@@ -106,6 +106,7 @@ export function stringData(plan: RunPlan, k: number, first: number, cells: numbe
   };
 }
 
+/** A string as its first readings tell: no departures, no hats. */
 export function startStringState(data: StringData): StringState {
   return {
     flow: 0,
