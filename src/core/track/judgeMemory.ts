@@ -74,6 +74,8 @@ export function freshSensor(): SensorMemory {
     before_K: Number.NaN,
     read_K: 0,
     modelled_K: 0,
+    sinceRead_K: 0,
+    sinceModelled_K: 0,
     firstRead_K: Number.NaN,
     firstRock_K: Number.NaN,
     recent_K: Number.NaN,

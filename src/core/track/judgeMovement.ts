@@ -16,6 +16,9 @@ export interface Movement {
   before_K: number;
   read_K: number;
   modelled_K: number;
+  /** The same since the reading last leapt against the rock within one scan, as a fault does when it begins. */
+  sinceRead_K: number;
+  sinceModelled_K: number;
   /** Reading and rock when another type's table first explained the reading [K]; NaN while none does. */
   firstRead_K: number;
   firstRock_K: number;
@@ -23,6 +26,8 @@ export interface Movement {
 
 /** Sums of movement fade over the passage of a front: a metre or two at half a metre an hour. */
 const FADE_S = 3 * 3600;
+/** A step of a reading against the rock by so many sigma within one scan is no movement. */
+const LEAP_SIGMAS = 4.5;
 /** Movement of the rock from which on wiring faults can be told [K]: eight sigma of a reading's noise. */
 export const MOVES_K = 4;
 
@@ -33,18 +38,25 @@ export function followMovement(
     readonly dt_s: number;
     readonly value_K: number;
     readonly predicted_K: number;
+    readonly sigma_K: number;
   },
 ): void {
   // What the gas does to a junction when its flow changes is not the rock's movement.
   if (evidence.time_ms < memory.unsettled_ms) {
     memory.read_K = memory.modelled_K = 0;
+    memory.sinceRead_K = memory.sinceModelled_K = 0;
     memory.before_K = Number.NaN;
     return;
   }
   const keep = Math.exp(-evidence.dt_s / FADE_S);
   if (Number.isFinite(memory.before_K) && Number.isFinite(memory.expected_K)) {
-    memory.read_K = keep * memory.read_K + (evidence.value_K - memory.before_K);
-    memory.modelled_K = keep * memory.modelled_K + (evidence.predicted_K - memory.expected_K);
+    const read = evidence.value_K - memory.before_K;
+    const modelled = evidence.predicted_K - memory.expected_K;
+    const leapt = Math.abs(read - modelled) > LEAP_SIGMAS * evidence.sigma_K;
+    memory.read_K = keep * memory.read_K + read;
+    memory.modelled_K = keep * memory.modelled_K + modelled;
+    memory.sinceRead_K = leapt ? 0 : keep * memory.sinceRead_K + read;
+    memory.sinceModelled_K = leapt ? 0 : keep * memory.sinceModelled_K + modelled;
   }
   memory.before_K = evidence.value_K;
 }
@@ -66,7 +78,9 @@ const MIRRORED_K = 50;
 
 /** Reading over rock, both in movement: -1 for reversed wires, less where the reading has held the estimate back. */
 const AGAINST = [0.5, 10] as const;
-const SUSPECT_MOVES_K = 2;
+/** Movement that makes it a suspect, and that shows it [K]: the reading then stands off by twice as much. */
+const SUSPECT_MOVES_K = 1.5;
+const MIRROR_MOVES_K = 2;
 
 /**
  * Reversed wires: the voltage changes sign about the cold junction, so reading + rock = 2 T_junction
@@ -88,12 +102,12 @@ export function mirrored(
   const beside = Math.abs(middle - JUNCTION_K);
   if (!(beside <= spread)) return 'no';
   if (apart > MIRRORED_K && beside <= spread / 2) return 'yes';
-  const { read_K, modelled_K } = memory;
-  const moved = Math.abs(modelled_K) - 2 * deadband_K;
+  const { sinceRead_K, sinceModelled_K } = memory;
+  const moved = Math.abs(sinceModelled_K) - 2 * deadband_K;
   if (!moving || moved < SUSPECT_MOVES_K) return 'no';
-  const against = -read_K / modelled_K;
+  const against = -sinceRead_K / sinceModelled_K;
   if (!(against > AGAINST[0] && against < AGAINST[1])) return 'no';
-  return moved < MOVES_K ? 'suspect' : 'yes';
+  return moved < MIRROR_MOVES_K ? 'suspect' : 'yes';
 }
 
 /** What an instrument of type `table` makes of a thermocouple of type `wire` at a temperature [degC]. */
