@@ -60,7 +60,8 @@ export function parameterColumns(
     const r = b / a;
     // (exp(-p) - r)/p loses digits for small p; its series is exact to p^2.
     const slope = p > 1e-3 ? (1 - p * r - r) / p : -0.5 + p / 3 - (p * p) / 8;
-    const da = (1 - a) * n;
+    // A flow so small that all is taken up at once: 0 times infinity.
+    const da = a < 1 ? (1 - a) * n : 0;
     const byFlow = da * ((work.filmSlope[i] as number) - 1);
     const dbFlow = byFlow * r + a * slope * p * (byFlow / a + 1);
     const dbTransfer = da * r + slope * p * da;
@@ -100,7 +101,7 @@ function conductivitySlopes(
   const a = work.relaxed[i] as number;
   const p = work.exchange[i] as number;
   const scale = flux * cf * dx;
-  const da = (1 - a) * n;
+  const da = a < 1 ? (1 - a) * n : 0;
   const along = (dlnN: number, dlnG: number): number => {
     const by = da * dlnN;
     const dp = p * (by / a + dlnG);

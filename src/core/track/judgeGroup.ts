@@ -80,11 +80,13 @@ function commonStep(
     if (!usable(c)) continue;
     const off = innovation(c);
     if (Math.abs(off - step) <= GROUP_SIGMAS * c.sigma_K) fit++;
-    if (off * Math.sign(step) > GROUP_SIGMAS * c.sigma_K) far++;
-    if (Math.abs(c.reading.slope_K_m) * TRAVEL_M < Math.abs(step)) flat++;
+    const isFar = off * Math.sign(step) > GROUP_SIGMAS * c.sigma_K;
+    if (isFar) far++;
+    if (isFar && Math.abs(c.reading.slope_K_m) * TRAVEL_M < Math.abs(step)) flat++;
     if (memoryOf(state, c).outside === 0) fresh++;
   }
-  if (fit < GROUP_SHARE * n || 2 * far <= n || 2 * flat <= n || 2 * fresh <= n) return null;
+  // In the front a reading is too uncertain to tell a step, but has to fit it.
+  if (fit < GROUP_SHARE * n || far < STORE_LEAST || 2 * fresh <= n) return null;
   let rest = 0;
   let off = 0;
   let own = 0;
@@ -98,8 +100,8 @@ function commonStep(
     rest++;
     if (Math.abs(innovation(c)) > GROUP_SIGMAS * c.sigma_K) off++;
   }
-  // Alone, all of it has to bear the step out.
-  if (rest === 0) return fit === n && far === n && others === 0 ? step : null;
+  // Alone, all of it has to fit, and what is far not by rock that moved.
+  if (rest === 0) return fit === n && flat >= STORE_LEAST && 2 * flat >= far ? step : null;
   return off <= (1 - GROUP_SHARE) * rest ? step : null;
 }
 

@@ -8,6 +8,9 @@ export interface SensorMemory extends Movement, Usual, Start {
   verdict: SensorVerdict | null;
   since_ms: number;
   evidence: string;
+  /** Last reading there was, and when; what a profile is drawn from where few report in a scan. */
+  seen_K: number;
+  seen_ms: number;
   /** Last reading, and when it last changed [K]. */
   last_K: number;
   changed_ms: number;
@@ -51,6 +54,8 @@ export function freshSensor(): SensorMemory {
     verdict: null,
     since_ms: 0,
     evidence: '',
+    seen_K: Number.NaN,
+    seen_ms: 0,
     last_K: Number.NaN,
     changed_ms: 0,
     moved_K: 0,

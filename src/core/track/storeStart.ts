@@ -11,11 +11,35 @@ export function plausibleRange(model: StoreModel): readonly [number, number] {
   return [cold - margin, hot + margin];
 }
 
-/** Readings of sensors that stand, within what the plant can produce. */
-export function usableReadings(
+/** A reading of this age still tells where the front is: it goes some centimetres meanwhile. */
+const RECENT_MS = 600_000;
+
+/** Notes what each thermocouple reads, for a start from readings of the last minutes. */
+export function rememberReadings(
   model: StoreModel,
   state: StoreState,
   values: Float64Array,
+  time_ms: number,
+): void {
+  model.channels.forEach((row, k) => {
+    row.forEach((at, s) => {
+      const value = values[at] as number;
+      if (!Number.isFinite(value)) return;
+      const memory = state.sensors[k]?.[s] as SensorMemory;
+      memory.seen_K = value;
+      memory.seen_ms = time_ms;
+    });
+  });
+}
+
+/**
+ * Readings of sensors that stand, within what the plant can produce: those of the last minutes, since
+ * in one scan few may report.
+ */
+export function usableReadings(
+  model: StoreModel,
+  state: StoreState,
+  time_ms: number,
 ): { tube: number; sensor: number; position_m: number; value_K: number }[] {
   const [low, high] = plausibleRange(model);
   const out: { tube: number; sensor: number; position_m: number; value_K: number }[] = [];
@@ -23,7 +47,8 @@ export function usableReadings(
     tube.string.thermocouples.forEach((thermocouple, s) => {
       const memory = state.sensors[k]?.[s] as SensorMemory;
       // Of a group at fault, what its step leaves.
-      const value = (values[model.channels[k]?.[s] as number] as number) - memory.shift_K;
+      if (!(time_ms - memory.seen_ms <= RECENT_MS)) return;
+      const value = memory.seen_K - memory.shift_K;
       if (!isBelieved(memory) && memory.verdict !== 'open') return;
       if (!(value > low && value < high)) return;
       out.push({ tube: k, sensor: s, position_m: thermocouple.position_m, value_K: value });
@@ -36,10 +61,10 @@ export function usableReadings(
 export function restart(
   model: StoreModel,
   state: StoreState,
-  values: Float64Array,
+  time_ms: number,
   inflate: number,
 ): void {
-  const readings = usableReadings(model, state, values);
+  const readings = usableReadings(model, state, time_ms);
   model.tubes.forEach((tube, k) => {
     const own = readings.filter((r) => r.tube === k);
     const source = own.length >= 2 ? own : readings;
@@ -61,6 +86,7 @@ export function restart(
   }
   state.missed = 0;
   state.settled = 0;
+  state.known_s = 0;
   state.used = readings.length;
 }
 
@@ -72,7 +98,7 @@ export function rememberStart(
   time_ms: number,
 ): void {
   const readings = new Set(
-    usableReadings(model, state, values).map((r) => `${r.tube}/${r.sensor}`),
+    usableReadings(model, state, time_ms).map((r) => `${r.tube}/${r.sensor}`),
   );
   const present = model.channels.flat().some((at) => Number.isFinite(values[at] as number));
   model.tubes.forEach((tube, k) => {

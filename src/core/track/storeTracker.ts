@@ -1,8 +1,9 @@
 import { type BedTables, buildBedTables } from '../bed/tables.js';
 import type { EstimatorDefinition, StoreDefinition } from '../definitions.js';
 import { freshSensor, type SensorMemory } from './judge.js';
+import type { Displaced } from './judgeDisplaced.js';
 import { blankTube } from './start.js';
-import { rememberStart, restart, usableReadings } from './storeStart.js';
+import { rememberReadings, rememberStart, restart, usableReadings } from './storeStart.js';
 import { updateStore } from './storeUpdate.js';
 import {
   createTubeScratch,
@@ -43,8 +44,12 @@ export interface StoreState {
   started: boolean;
   /** Energy-equivalent position where the fronts were last known to be even across the bed [m]. */
   origin_m: number;
+  /** Where a few readings say that the front stands elsewhere, by tube; see findDisplaced. */
+  readonly displaced: (Displaced | null)[];
   /** Scans in a row in which most readings stood outside the gate. */
   missed: number;
+  /** Time since the profile was last drawn anew [s]. */
+  known_s: number;
   /** Scans since the profile was last re-acquired, capped. */
   settled: number;
   /** Readings used in the last scan. */
@@ -81,9 +86,11 @@ export function startStore(model: StoreModel): StoreState {
     wall,
     tubes,
     sensors: model.tubes.map((tube) => tube.string.thermocouples.map(freshSensor)),
+    displaced: tubes.map(() => null),
     started: false,
     origin_m: 0,
     missed: 0,
+    known_s: 0,
     settled: 0,
     used: 0,
   };
@@ -111,17 +118,19 @@ export function stepStore(
   time_ms: number,
   unknownTravel_m: number,
 ): StoreStep {
+  rememberReadings(model, state, values, time_ms);
   state.used = 0;
   state.settled = Math.min(SETTLED_MAX, state.settled + 1);
   if (!state.started) {
-    const readings = usableReadings(model, state, values);
+    const readings = usableReadings(model, state, time_ms);
     rememberStart(model, state, values, time_ms);
     if (readings.length < 2) return 'not_started';
-    restart(model, state, values, 1);
+    restart(model, state, time_ms, 1);
     state.started = true;
     return 'reacquired';
   }
   if (drive !== null) {
+    state.known_s += drive.dt_s;
     model.tubes.forEach((tube, k) => {
       predictTube(tube, state.tubes[k] as TubeState, drive, model.scratch[k] as TubeScratch);
     });
@@ -137,8 +146,8 @@ export function stepStore(
       );
     }
   }
-  if (unknownTravel_m > LOST_TRAVEL_M && usableReadings(model, state, values).length >= 3) {
-    restart(model, state, values, REACQUIRE_INFLATION);
+  if (unknownTravel_m > LOST_TRAVEL_M && usableReadings(model, state, time_ms).length >= 3) {
+    restart(model, state, time_ms, REACQUIRE_INFLATION);
     return 'reacquired';
   }
   return updateStore(model, state, values, time_ms, drive);

@@ -1,5 +1,6 @@
 import type { SensorVerdict } from '../estimate.js';
 import { doubtBeside, GATE_SIGMAS, isBelieved, type SensorMemory } from './judge.js';
+import { findDisplaced } from './judgeDisplaced.js';
 import { judgeGroups } from './judgeGroup.js';
 import { followStart, widenGuesses } from './judgeStart.js';
 import { forgetSensor } from './judgeUndo.js';
@@ -61,10 +62,16 @@ export function updateStore(
     // Most readings miss: the estimate is in doubt, not the sensors, so the verdicts stay.
     state.missed++;
     if (state.missed < MISS_SCANS) return 'missed';
-    restart(model, state, values, REACQUIRE_INFLATION);
+    restart(model, state, time_ms, REACQUIRE_INFLATION);
     return 'reacquired';
   }
   state.missed = 0;
+  const elsewhere = findDisplaced(model, state, work, drive);
+  if (elsewhere === 'open') return 'missed';
+  if (elsewhere === 'confirmed') {
+    restart(model, state, time_ms, REACQUIRE_INFLATION);
+    return 'reacquired';
+  }
   if (widenGuesses(model, state, work, drive)) predictReadings(model, state, work);
   const before = candidates.map((c) => memoryOf(state, c).verdict);
   const accepted = judgeAll(model, state, work, drive, time_ms);

@@ -1,4 +1,5 @@
 import { energyPosition } from './energyPosition.js';
+import { displacedSigma } from './judgeDisplaced.js';
 import { referenceEnthalpies } from './storeEnergy.js';
 import type { StoreModel, StoreState } from './storeTracker.js';
 import { streamsOf } from './streams.js';
@@ -22,7 +23,9 @@ const SWEPT = 0.08;
 export function followOrigin(model: StoreModel, state: StoreState, restarted: boolean): void {
   const x = storeEnergyPosition(model, state);
   const share = x / model.store.bed.length_m;
-  if (restarted || share < SWEPT || share > 1 - SWEPT) state.origin_m = x;
+  if (share < SWEPT || share > 1 - SWEPT) state.origin_m = x;
+  // Drawn anew in mid-bed it is not known since when the fronts have run apart: from the inlet on.
+  else if (restarted) state.origin_m = 0;
 }
 
 /**
@@ -30,13 +33,23 @@ export function followOrigin(model: StoreModel, state: StoreState, restarted: bo
  * the rock there from the rock at the outermost string.
  */
 const WALL_SIGMA = 0.2;
+/**
+ * At a start the rock at the wall is taken to be as the rock at the string, though it may lag by what
+ * the steel has taken from it: of the steel's share of the store's heat a quarter, for half a cycle.
+ */
+const UNKNOWN_WALL = 0.25;
+const WALL_MEMORY_S = 6 * 3600;
 
 /** One sigma of the state of charge from rock that no string sees: its flow, and the wall [-]. */
 export function unseenSigma(model: StoreModel, state: StoreState): number {
   const length = model.store.bed.length_m;
   const way = Math.abs(storeEnergyPosition(model, state) - state.origin_m) / length;
   const squares = model.tubes.reduce((sum, tube) => sum + tube.string.area_share ** 2, 0);
-  return Math.hypot(UNSEEN_FLOW * way * Math.sqrt(squares), wallSigma(model, state, way));
+  return Math.hypot(
+    UNSEEN_FLOW * way * Math.sqrt(squares),
+    wallSigma(model, state, way),
+    displacedSigma(model, state),
+  );
 }
 
 function wallSigma(model: StoreModel, state: StoreState, way: number): number {
@@ -54,9 +67,12 @@ function wallSigma(model: StoreModel, state: StoreState, way: number): number {
     apart += (share * sum) / own.length;
   });
   const last = wall.layers[wall.layers.length - 1]?.share ?? 0;
+  const { heatCapacity, segments } = model.tables;
+  const steel = (wall.steel_J_m3K * last) / (heatCapacity[segments >> 1] as number);
   return Math.hypot(
     (WALL_SIGMA * apart) / Math.abs(charged - discharged),
     last * wall.flowSigma * way,
+    UNKNOWN_WALL * steel * Math.exp(-state.known_s / WALL_MEMORY_S),
   );
 }
 
