@@ -1,4 +1,4 @@
-import { isBelieved, judgeSensor, type SensorMemory } from './judge.js';
+import { doubtBeside, isBelieved, judgeSensor, type SensorMemory } from './judge.js';
 import { type StartReading, startTube } from './start.js';
 import type { StoreModel, StoreState } from './storeTracker.js';
 import type { TubeState } from './tube.js';
@@ -83,6 +83,8 @@ export function restart(
     // What moved was the estimate that is given up, not the rock.
     memory.moved_K = 0;
     memory.expected_K = Number.NaN;
+    // In mid-bed the profile is a guess between thermocouples, and no measure of how one drifts.
+    if (inflate > 1) doubtBeside(memory, time_ms);
   }
   state.missed = 0;
   state.settled = 0;
