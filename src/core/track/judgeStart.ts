@@ -38,12 +38,12 @@ export function widenGuesses(
   if (drive === null || drive.massFlux_kg_m2s === 0) return false;
   for (const c of work.candidates) {
     const memory = state.sensors[c.tube]?.[c.sensor] as SensorMemory;
-    if (memory.guessed_m === 0 || !isBelieved(memory)) continue;
+    if (memory.guessed_m === 0 || memory.outside > 0 || !isBelieved(memory)) continue;
     const off = Math.abs(innovation(c));
     const room = GATE_SIGMAS * c.sigma_K;
     if (!(off > room)) continue;
     const leap = Math.max(room, LEAP_SHARE * (memory.high_K - memory.low_K));
-    if (memory.outside > 0 || Math.abs(c.value_K - memory.before_K) > leap) continue;
+    if (off > leap || !(Math.abs(c.value_K - memory.before_K) < leap)) continue;
     if (c.value_K < memory.low_K - room || c.value_K > memory.high_K + room) continue;
     const tube = model.tubes[c.tube] as TubeModel;
     widen(tube, state.tubes[c.tube] as TubeState, c.sensor, off, memory.guessed_m / 2);

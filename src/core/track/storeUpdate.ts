@@ -168,6 +168,8 @@ const SETTLE_MS = 3 * 180_000;
 /** Junctions see anything from none to all of the gas: half of it from the mean. */
 const SHARE_REACH = 0.5;
 
+/** Smaller changes of the lag from scan to scan are the gas's properties and a drifting flow. */
+const JUMP_SHARE = 0.2;
 /** How long a place keeps what the gas has put into it: half a cycle [s]. */
 const REACH_S = 6 * 3600;
 
@@ -178,8 +180,12 @@ const REACH_S = 6 * 3600;
  */
 function followLag(memory: SensorMemory, c: Candidate, time_ms: number, dt_s: number): void {
   const { lag_m, slope_K_m } = c.reading;
-  const jump = SHARE_REACH * Math.abs((lag_m - memory.lag_m) * slope_K_m);
-  if (jump * jump > 4 * c.variance_K2) memory.unsettled_ms = time_ms + SETTLE_MS;
+  const change = Math.abs(lag_m - memory.lag_m);
+  const most = Math.max(Math.abs(lag_m), Math.abs(memory.lag_m));
+  const jump = SHARE_REACH * change * Math.abs(slope_K_m);
+  if (change > JUMP_SHARE * most && jump * jump > 4 * c.variance_K2) {
+    memory.unsettled_ms = time_ms + SETTLE_MS;
+  }
   memory.lag_m = lag_m;
   memory.reach_m = Math.max(Math.abs(lag_m), memory.reach_m * Math.exp(-dt_s / REACH_S));
 }
