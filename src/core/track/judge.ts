@@ -101,8 +101,8 @@ function judgeRecovery(memory: SensorMemory, evidence: SensorEvidence, innovatio
     memory.sound = 0;
     return;
   }
-  // Where the estimate is too uncertain to tell, nothing is learned.
-  if (SOUND_SIGMAS * evidence.sigma_K > 2 * limit) return;
+  // Where what it was off by would not stand outside the gate, nothing is learned.
+  if (GATE_SIGMAS * evidence.sigma_K > 2 * limit) return;
   if (WIRING.includes(memory.verdict)) {
     if (memory.sound === 0) memory.read_K = memory.modelled_K = 0;
     else if (!movesAsRock(memory)) {
