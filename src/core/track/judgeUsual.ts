@@ -59,7 +59,11 @@ export function followUsual(memory: Usual, evidence: UsualEvidence): void {
   const d = evidence.value_K - rock;
   const { dt_s } = evidence;
   if (!Number.isFinite(evidence.rockSigma_K)) return;
-  if (Number.isNaN(memory.usual_K)) {
+  // While its profile is in doubt, and then until the front has passed, nothing is usual yet.
+  const doubtful =
+    evidence.time_ms < memory.doubt_ms ||
+    (memory.doubt_ms > 0 && memory.usualAge_s < LEARN_S && inFront(evidence));
+  if (Number.isNaN(memory.usual_K) || doubtful) {
     memory.usual_K = d;
     memory.recent_K = d;
     memory.usualRock_K = rock;
