@@ -8,14 +8,18 @@ import { type TubeDrive, type TubeModel, type TubeState, tubeTemperatures } from
  * they would be taken for faulty ones. Where the profile moved along the bed explains all readings of
  * the string, the front and the sensor are told apart by what follows:
  *
- * - a reading that lies on the far side's plateau is the front's: a fault hits that value by chance
- *   in one of many;
- * - tubes that agree on the displacement are not all at fault;
+ * - tubes that agree on the displacement, and two readings of a string, are not all at fault;
  * - else the front goes on: with the true front the displacement stays while the front travels, with
  *   a sensor at fault it shrinks or grows by just that way. Half of the way decides.
+ *
+ * A single reading counts only where the store has no other string to ask. That it lies on the far
+ * side's plateau says nothing: a junction shorted in the cabinet reads ambient, which is a plateau too.
  */
 export interface Displaced {
   scans: number;
+  age_s: number;
+  /** Readings off when it began: with more of them it is looked at anew. */
+  readings: number;
   /** Displacement found at first, and the way of the front since then [m]. */
   first_m: number;
   travel_m: number;
@@ -27,13 +31,11 @@ export interface Displaced {
 const OFF_SHARE = 0.15;
 /** The displaced profile explains a reading to this share. */
 const FIT_SHARE = 0.06;
-/** A reading is on a plateau within this share. */
-const PLATEAU_SHARE = 0.03;
 const LEAST_SCANS = 3;
 /** Tubes agree within this [m]. */
 const AGREE_M = 0.3;
-/** At rest nothing travels: after so many scans the doubt ends with the sensor. */
-const MOST_SCANS = 60;
+/** At rest nothing travels: after this long the doubt ends with the sensor [s]. */
+const MOST_S = 1800;
 /** Way after which the displacement is looked at again [m]. */
 const DECIDING_WAY_M = 0.15;
 
@@ -61,6 +63,7 @@ export function findDisplaced(
   const { reference_hot_K: hot, reference_cold_K: cold } = model.store;
   const span = hot - cold;
   const shifts: { k: number; shift: number }[] = [];
+  const alone: boolean[] = [];
   const confirmed: number[] = [];
   model.tubes.forEach((tube, k) => {
     const from = work.first[k] as number;
@@ -77,7 +80,9 @@ export function findDisplaced(
       state.displaced[k] = null;
       return;
     }
-    const known = state.displaced[k] ?? null;
+    const before = state.displaced[k] ?? null;
+    // More readings off than when it was decided: that is news.
+    const known = before !== null && off.length > before.readings ? null : before;
     if (known?.refuted) return;
     const profile = tubeTemperatures(
       tube,
@@ -89,23 +94,28 @@ export function findDisplaced(
       state.displaced[k] = null;
       return;
     }
-    const now = known ?? { scans: 0, first_m: shift, travel_m: 0, refuted: false };
+    const readings = off.length;
+    const start = { scans: 0, age_s: 0, readings, first_m: shift, travel_m: 0, refuted: false };
+    const now: Displaced = known ?? start;
     now.scans++;
-    if (known !== null && drive !== null) now.travel_m += travelOf(model, drive);
+    if (known !== null && drive !== null) {
+      now.travel_m += travelOf(model, drive);
+      now.age_s += drive.dt_s;
+    }
     state.displaced[k] = now;
     shifts.push({ k, shift });
+    alone.push(readings === 1 && model.tubes.length > 1);
     if (now.scans < LEAST_SCANS) return;
-    const ends = [profile[0] as number, profile[profile.length - 1] as number];
-    const plateau = (c: Candidate): boolean =>
-      ends.some((end) => Math.abs(c.value_K - end) < PLATEAU_SHARE * span);
     const gone = Math.abs(now.travel_m) > DECIDING_WAY_M;
     const stays = gone && Math.abs(shift - now.first_m) < 0.5 * Math.abs(now.travel_m);
     const agreed = shifts.some((o) => o.k !== k && Math.abs(o.shift - shift) < AGREE_M);
-    if (off.every(plateau) || stays || agreed) confirmed.push(k);
-    else if (gone || now.scans > MOST_SCANS) now.refuted = true;
+    if (agreed || readings > 1 || (stays && model.tubes.length === 1)) confirmed.push(k);
+    else if (gone || now.age_s > MOST_S) now.refuted = true;
   });
   if (confirmed.length === 0) {
-    return shifts.some(({ k }) => state.displaced[k]?.refuted === false) ? 'open' : 'none';
+    const open = ({ k }: { k: number }, i: number): boolean =>
+      state.displaced[k]?.refuted === false && !(alone[i] && shifts.length === 1);
+    return shifts.some(open) ? 'open' : 'none';
   }
   for (const { k } of shifts) {
     const from = work.first[k] as number;

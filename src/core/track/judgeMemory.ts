@@ -76,6 +76,7 @@ export function freshSensor(): SensorMemory {
     swapScans: 0,
     swapWith: -1,
     doubt_ms: 0,
+    guess_ms: 0,
     before_K: Number.NaN,
     read_K: 0,
     modelled_K: 0,

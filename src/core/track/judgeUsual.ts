@@ -20,6 +20,8 @@ export interface Usual {
   usualAge_s: number;
   /** Until when one beside it that was found out may have bent the profile here. */
   doubt_ms: number;
+  /** Until when its profile is one that was drawn anew between thermocouples. */
+  guess_ms: number;
   /** Time that the deviation has been beyond what is allowed [s]. */
   beyond_s: number;
 }
@@ -60,9 +62,9 @@ export function followUsual(memory: Usual, evidence: UsualEvidence): void {
   const { dt_s } = evidence;
   if (!Number.isFinite(evidence.rockSigma_K)) return;
   // While its profile is in doubt, and then until the front has passed, nothing is usual yet.
+  const until = Math.max(memory.doubt_ms, memory.guess_ms);
   const doubtful =
-    evidence.time_ms < memory.doubt_ms ||
-    (memory.doubt_ms > 0 && memory.usualAge_s < LEARN_S && inFront(evidence));
+    evidence.time_ms < until || (until > 0 && memory.usualAge_s < LEARN_S && inFront(evidence));
   if (Number.isNaN(memory.usual_K) || doubtful) {
     memory.usual_K = d;
     memory.recent_K = d;
@@ -99,6 +101,7 @@ function isLearning(memory: Usual, evidence: UsualEvidence): boolean {
     memory.usualAge_s < LEARN_S ||
     evidence.movesAlike ||
     evidence.time_ms < memory.doubt_ms ||
+    evidence.time_ms < memory.guess_ms ||
     evidence.rockSigma_K > evidence.offsetSigma_K / 2
   );
 }

@@ -1,4 +1,4 @@
-import { doubtBeside, isBelieved, judgeSensor, type SensorMemory } from './judge.js';
+import { isBelieved, judgeSensor, type SensorMemory } from './judge.js';
 import { type StartReading, startTube } from './start.js';
 import type { StoreModel, StoreState } from './storeTracker.js';
 import type { TubeState } from './tube.js';
@@ -57,6 +57,9 @@ export function usableReadings(
   return out;
 }
 
+/** For this long a profile that was drawn anew is no measure of a slow drift: the passage of a front. */
+const GUESS_MS = 3 * 3600_000;
+
 /** Draws every tube's profile anew through its readings (through all strings' where it has too few). */
 export function restart(
   model: StoreModel,
@@ -84,7 +87,7 @@ export function restart(
     memory.moved_K = 0;
     memory.expected_K = Number.NaN;
     // In mid-bed the profile is a guess between thermocouples, and no measure of how one drifts.
-    if (inflate > 1) doubtBeside(memory, time_ms);
+    if (inflate > 1) memory.guess_ms = time_ms + GUESS_MS;
   }
   state.missed = 0;
   state.settled = 0;
