@@ -4,7 +4,7 @@ import { type BedTables, temperatureAt } from '../bed/tables.js';
 import type { StoreDefinition, UnitDefinition } from '../definitions.js';
 import type { EndCause } from '../estimate.js';
 import type { Machine } from '../machine/machine.js';
-import { exchangeAtWall, type WallModel } from '../track/wallZone.js';
+import { exchangeAtWall, shareAround, type WallModel } from '../track/wallZone.js';
 import { excessLag, isSwept, throughPlenum } from './plenum.js';
 
 /** One tube as the rollout needs it. */
@@ -18,6 +18,7 @@ export interface RolloutTube {
   readonly wall?: { readonly model: WallModel; readonly steel_K: Float64Array };
 }
 
+/** One store as the rollout needs it; shares of its tubes, layers at the wall included, add up to 1. */
 export interface RolloutStore {
   readonly store: StoreDefinition;
   readonly tables: BedTables;
@@ -26,6 +27,7 @@ export interface RolloutStore {
   readonly plenum_K: number;
 }
 
+/** A discharge to be rolled out: unit, machine, the stores as they are now, and the power asked for. */
 export interface RolloutInput {
   readonly unit: UnitDefinition;
   readonly machine: Machine;
@@ -51,6 +53,7 @@ export const RULES: readonly EndCause[] = [
   'empty',
 ];
 
+/** When a rolled-out discharge ends and by which rule; times from its start [s]. */
 export interface RolloutResult {
   /** When each rule is first broken [s], Infinity where it is not within the time rolled. */
   readonly times_s: Float64Array;
@@ -241,7 +244,15 @@ function stepStoreBeds(
       const beside = beds[model.tube] as Float64Array;
       // The layers are the last streams, and this is the last of them.
       const layers = beds.slice(k + 1 - model.layers.length, k + 1);
+      const before = model.ring.length > 1 ? beside.slice() : null;
       exchangeAtWall(model, store.tables, layers, steel, beside, step);
+      if (before !== null) {
+        shareAround(
+          model,
+          beds.map((enthalpy) => ({ enthalpy })),
+          before,
+        );
+      }
     }
     const weight = tube.area_share * flux;
     heat += weight * (out / substeps);

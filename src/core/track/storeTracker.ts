@@ -16,6 +16,7 @@ import {
 } from './tube.js';
 import {
   resetWall,
+  shareAround,
   startWall,
   stepWall,
   type WallModel,
@@ -136,14 +137,17 @@ export function stepStore(
     });
     if (model.wall !== null && state.wall !== null) {
       const k = model.wall.tube;
+      const beside = state.tubes[k] as TubeState;
+      const before = model.wall.ring.length > 1 ? beside.enthalpy.slice() : null;
       stepWall(
         model.wall,
         model.tubes[k] as TubeModel,
-        state.tubes[k] as TubeState,
+        beside,
         state.wall,
         drive,
         model.scratch[k] as TubeScratch,
       );
+      if (before !== null) shareAround(model.wall, state.tubes, before);
     }
   }
   if (unknownTravel_m > LOST_TRAVEL_M && usableReadings(model, state, time_ms).length >= 3) {

@@ -26,7 +26,9 @@ export function streamsOf(model: StoreModel, state: StoreState): Stream[] {
     const own = state.tubes[k] as TubeState;
     const at = (index: number): number => own.further[index - tube.layout.cells] as number;
     return {
-      share: tube.string.area_share - (wall?.tube === k ? wall.share : 0),
+      share: wall?.ring.includes(k)
+        ? tube.string.area_share * (1 - wall.share / wall.ringShare)
+        : tube.string.area_share,
       enthalpy: own.enthalpy,
       outlet_K: own.outlet_K,
       flowFactor: Math.exp(at(tube.layout.flow)),

@@ -24,8 +24,12 @@ import {
  * tube's temperatures moves the layers alike.
  */
 export interface WallModel {
-  /** Index of the outermost tube. */
+  /** Index of the outermost tube, whose factors the layers have. */
   readonly tube: number;
+  /** All tubes of that ring, itself included: strings at (nearly) one radius. */
+  readonly ring: readonly number[];
+  /** Share of the bed's cross-section for which those strings stand. */
+  readonly ringShare: number;
   /** Share of the bed's cross-section, all layers together. */
   readonly share: number;
   /** What lies inwards of the string first, if anything; then from the string to the wall. */
@@ -78,6 +82,8 @@ const RADIAL_MIXING = 0.1;
  */
 const WALL_FLOW_DIAMETERS = 0.35;
 const WALL_FLOW_SIGMA_DIAMETERS = 0.15;
+/** Strings whose radii differ by less than this share of the bed's stand in one ring. */
+const ONE_RING = 0.03;
 /** Of the rock between the outermost string and the wall, at most this share is layers. */
 const MOST_OF_WAY = 0.8;
 
@@ -94,12 +100,19 @@ export function wallModel(tables: BedTables, tubes: readonly TubeModel[]): WallM
   const k = tables.stagnant[middle] as number;
   const alpha = k / (tables.heatCapacity[middle] as number);
   const radius = bed.diameter_m / 2;
-  const { radius_m, area_share } = (tubes[tube] as TubeModel).string;
+  const { radius_m } = (tubes[tube] as TubeModel).string;
+  const ring = tubes.flatMap((t, i) =>
+    t.string.radius_m > radius_m - ONE_RING * radius ? [i] : [],
+  );
+  const ringShare = ring.reduce((sum, i) => sum + (tubes[i] as TubeModel).string.area_share, 0);
   const total = LAYERS.reduce((sum, layer) => sum + layer, 0);
   const way = Math.max(0.1 * radius, radius - radius_m);
-  const depth = Math.min((MOST_OF_WAY * way) / total, 2 * Math.sqrt(alpha * HALF_CYCLE_S));
+  const inside = radius * Math.sqrt(Math.max(0, 1 - ringShare));
+  const depth = Math.min(
+    (MOST_OF_WAY * Math.min(way, radius - inside)) / total,
+    2 * Math.sqrt(alpha * HALF_CYCLE_S),
+  );
   // The tube itself is the rock about the string, as far inwards as outwards.
-  const inside = radius * Math.sqrt(1 - area_share);
   const outwards = radius - total * depth;
   const inwards = Math.max(inside, 2 * (radius - way) - outwards);
   const shareOf = (from: number, to: number): number => (to * to - from * from) / (radius * radius);
@@ -139,6 +152,8 @@ export function wallModel(tables: BedTables, tubes: readonly TubeModel[]): WallM
   const perVolume = (Math.PI * bed.diameter_m) / ((layers[last] as WallLayer).share * bed.area_m2);
   return {
     tube,
+    ring,
+    ringShare,
     share: layers.reduce((sum, layer) => sum + layer.share, 0),
     layers,
     steel_J_m3K: steel * perVolume,
@@ -188,6 +203,22 @@ export function stepWall(
     wall.outlet_K[i] = drive.massFlux_kg_m2s === 0 ? Number.NaN : out / substeps;
   });
   exchangeAtWall(model, tables, wall.enthalpy, wall.steel_K, tube.enthalpy, whole);
+}
+
+/** What the exchange at the wall has done to one tube of the ring, done to the others as well. */
+export function shareAround(
+  model: WallModel,
+  tubes: readonly { readonly enthalpy: Float64Array }[],
+  before: Float64Array,
+): void {
+  const leader = (tubes[model.tube] as { enthalpy: Float64Array }).enthalpy;
+  for (const k of model.ring) {
+    if (k === model.tube) continue;
+    const own = (tubes[k] as { enthalpy: Float64Array }).enthalpy;
+    for (let i = 0; i < own.length; i++) {
+      own[i] = (own[i] as number) + (leader[i] as number) - (before[i] as number);
+    }
+  }
 }
 
 /** Share of a layer's heat that one explicit step may move. */
