@@ -37,11 +37,12 @@ export interface UnitSnapshot {
   readonly state: UnitState;
 }
 
-const SNAPSHOT_VERSION = 4;
+const SNAPSHOT_VERSION = 5;
 const NOTHING: UnitAsk = { hours_at_W: [], profile: false };
 /** Longest run of empty scans that a gap is filled with; a longer gap takes coarser ones. */
 const TICKS_MOST = 720;
 
+/** State of a unit before its first scan: no store has started, nothing is learned. */
 export function startUnit(unit: UnitDefinition): UnitState {
   const model = unitModel(unit);
   return {

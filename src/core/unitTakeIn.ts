@@ -28,6 +28,7 @@ export interface Taken {
   readonly modeChanged: boolean;
 }
 
+/** What one scan did to a store: its step, its heat, its fronts, and the steps of its front views. */
 export interface TakenStore {
   readonly step: StoreStep;
   readonly energy: StoreEnergy;

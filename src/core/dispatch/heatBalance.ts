@@ -22,6 +22,7 @@ export interface HeatBalance {
   readonly last: Record<Direction, Measured | null>;
 }
 
+/** A balance that has seen nothing: the first step with a direction begins its run. */
 export function startHeatBalance(): HeatBalance {
   return {
     direction: null,
@@ -43,6 +44,7 @@ const LEFT_OUT = 0.004;
 /** Thermometers at the two ends: +/-1 K each. */
 const GAS_SIGMA_K = 0.7;
 
+/** What one scan tells the balance of a store; `inlet_K` is that of the gas which enters it [K]. */
 export interface BalanceStep {
   /** null where it stands or the flow is not known. */
   readonly direction: Direction | null;

@@ -17,6 +17,7 @@ export interface MachineFactor {
   surprise: number;
 }
 
+/** A factor that has learned nothing: ln = 0, its variance null, settled in no mode yet. */
 export function startMachineFactor(): MachineFactor {
   return {
     log: 0,

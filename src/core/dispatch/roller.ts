@@ -26,6 +26,7 @@ export interface Perturbation {
   readonly work?: number;
 }
 
+/** Rollouts of one state at one power, as it is or with one thing perturbed; see `createRoller`. */
 export interface Roller {
   /** Longest time that is rolled out [s]. */
   readonly most_s: number;

@@ -16,6 +16,13 @@ const CHARGE_EVERY_S = 600;
 /** A jump of a store's state of charge beyond this asks for a rollout at once. */
 const CHARGE_JUMP = 0.05;
 
+/**
+ * One scan's news for the machine factors of both directions (changed in place): measured over
+ * modelled power per metered kilogram while the unit runs with flow and power read.
+ *
+ * @param dt_s time since the scan before [s]
+ * @param outlets gas leaving the stores in either direction [K]
+ */
 export function learnMachine(
   model: UnitModel,
   state: UnitState,

@@ -20,6 +20,7 @@ export interface ChannelMap {
   readonly gas: Readonly<Record<string, Readonly<Record<StoreEnd, number>>>>;
 }
 
+/** Finds the channels of a unit by their roles: indices into `Scan.values`, gas by id of the store. */
 export function mapChannels(unit: UnitDefinition): ChannelMap {
   const find = (test: (c: ChannelDefinition) => boolean): number => unit.channels.findIndex(test);
   const flow = (sense: string): number =>
@@ -74,6 +75,7 @@ export function startConditions(): ConditionsState {
   };
 }
 
+/** What a unit does in a scan, as `readConditions` makes it out: mode, flow, power, ambient [K]. */
 export interface Conditions {
   readonly mode: Mode;
   /** Signed metered flow used for this scan, + = charge [kg/s]. */

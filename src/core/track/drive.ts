@@ -66,6 +66,12 @@ export function unknownTravel(
   return Math.sqrt(after * after - before * before);
 }
 
+/**
+ * What drives the tubes of store `s` in a scan: mass flux over the whole bed [kg/m2s], the gas that
+ * enters as measured, else as the machine model has it at `outlets` [K], over `dt_s` [s].
+ *
+ * @param travelSigma_m this scan's part of the unknown travel; see `unknownTravel`
+ */
 export function driveOf(
   model: UnitModel,
   s: number,

@@ -29,6 +29,7 @@ export interface TubeLayout {
   readonly groupOf: readonly number[];
 }
 
+/** Layout for a string: `cells` + 6 states, two per thermocouple, one per group that it names. */
 export function layoutOf(string: StringDefinition, estimator: EstimatorDefinition): TubeLayout {
   const groups: string[] = [];
   const groupOf = string.thermocouples.map((sensor) => {

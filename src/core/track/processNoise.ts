@@ -7,21 +7,6 @@ import {
   type TubeState,
 } from './tube.js';
 
-/**
- * What the bed model does not know, per scan, added to a tube's covariance:
- *
- * - flow: relative error of the metered flow over its correlation time, and unknown travel, as one
- *   common displacement of the profile: rank one along dT/dlnf or dT/dx;
- * - inlet: white error of an assumed inlet temperature, along the first cells' response;
- * - shape: displacement of single isotherms that grows with the square root of the distance
- *   travelled, correlated over SHAPE_LENGTH: (dT/dx)^2 kappa^2 |v| dt;
- * - standing: heat between tubes, natural convection and uncertain losses, as a slow walk of each
- *   temperature that grows with its distance from ambient;
- * - slow walks of flow, transfer and gas-share factors, faster while the tube is surprised; offsets
- *   are first-order Gauss-Markov.
- *
- * Scaled by dt, so a scan in parts adds the same as one in whole.
- */
 const FLOW_NOISE = 0.015; // relative, common practice for a thermal or orifice meter's short-term error, no source
 const FLOW_CORRELATION_S = 600;
 const SHAPE_PER_METRE_M = 0.02; // [m per sqrt(m)], from the ring truth's isotherm scatter; see DEVELOPERS.md
@@ -41,6 +26,21 @@ const HOUR_S = 3600;
 const ADAPT_FROM = 2;
 const ADAPT_MOST = 30;
 
+/**
+ * What the bed model does not know, per scan, added to a tube's covariance:
+ *
+ * - flow: relative error of the metered flow over its correlation time, and unknown travel, as one
+ *   common displacement of the profile: rank one along dT/dlnf or dT/dx;
+ * - inlet: white error of an assumed inlet temperature, along the first cells' response;
+ * - shape: displacement of single isotherms that grows with the square root of the distance
+ *   travelled, correlated over SHAPE_LENGTH: (dT/dx)^2 kappa^2 |v| dt;
+ * - standing: heat between tubes, natural convection and uncertain losses, as a slow walk of each
+ *   temperature that grows with its distance from ambient;
+ * - slow walks of flow, transfer and gas-share factors, faster while the tube is surprised; offsets
+ *   are first-order Gauss-Markov.
+ *
+ * Scaled by dt, so a scan in parts adds the same as one in whole.
+ */
 export function addProcessNoise(
   model: TubeModel,
   state: TubeState,

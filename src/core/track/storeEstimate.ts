@@ -165,6 +165,7 @@ export function meanFactor(
   return { value, sigma: value * Math.sqrt(variance) };
 }
 
+/** Thermocouples with a verdict, by string and place; those of a `group_fault` are used on none the less. */
 export function rejectedSensors(model: StoreModel, state: StoreState): RejectedSensor[] {
   const out: RejectedSensor[] = [];
   model.tubes.forEach((tube, k) => {
