@@ -88,7 +88,7 @@ export function fragmentText(result: TuneResult, source: string): string {
     result.rows.find((one) => one.store === store && one.name === name) as TuneRow;
   const line = (indent: string, key: string, value: number | null, one: TuneRow): string =>
     value === null
-      ? `${indent}# ${key}: not determined: ${reasonOf(one, result.rows)}`
+      ? `${indent}# ${key}: ${one.determined ? unsaid(result) : `not determined: ${reasonOf(one, result.rows)}`}`
       : `${indent}${key}: ${Number(value.toPrecision(4))} # ${sigmaText(one)} (1 sigma)`;
   const { work_factor, stores } = result.configure;
   const anyWork = work_factor.charge !== null || work_factor.discharge !== null;
@@ -114,14 +114,32 @@ export function fragmentText(result: TuneResult, source: string): string {
     '    stores:',
   ];
   for (const store of stores) {
+    const fit = result.fits.find((one) => one.store === store.id);
+    lines.push(`      - id: ${store.id}`);
+    for (const { id, residual_K } of fit?.left_out ?? []) {
+      lines.push(
+        `        # fitted without ${id}, which the model misses by ${residual_K.toFixed(1)} K`,
+      );
+    }
+    if (fit?.converged === false) {
+      lines.push('        # no factors: the search has not settled, its values are rough');
+      continue;
+    }
     const keys = FACTORS.map((key) => [key, store[key], row(store.id, key)] as const);
     const any = keys.some(([, value]) => value !== null);
-    lines.push(`      - id: ${store.id}`);
     if (any) lines.push('        factors:');
     const indent = any ? '          ' : '        ';
     for (const [key, value, one] of keys) lines.push(line(indent, key, value, one));
   }
   return `${lines.join('\n')}\n`;
+}
+
+/** Why a work factor is left out although the work is known: what it has to be divided by is not. */
+function unsaid({ fits, rows }: TuneResult): string {
+  const rough = fits.filter((fit) => !fit.converged).map((fit) => fit.store);
+  if (rough.length > 0) return `left out: the search has not settled for ${rough.join(', ')}`;
+  const open = rows.filter((row) => row.name === 'front_travel' && !row.determined);
+  return `left out: not determined is ${open.map(labelOf).join(', ')}`;
 }
 
 type FactorKey = Exclude<keyof TuneConfigure['stores'][number], 'id'>;

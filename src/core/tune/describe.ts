@@ -1,12 +1,13 @@
 import type { Direction, UnitDefinition } from '../definitions.js';
 import type { UnitModel } from '../unitModel.js';
 import { type Combined, placeOfStore, STORE, UNIT } from './combine.js';
+import { configureOf } from './configure.js';
 import type { Evidence } from './evidence.js';
 import type { StoreFit } from './fitTypes.js';
 import type { MachineWork } from './machineWork.js';
 import type { TunePriors } from './priors.js';
 import type { TuneRecord } from './record.js';
-import type { Tunable, TuneConfigure, TuneReason, TuneResult, TuneRow } from './result.js';
+import type { Tunable, TuneReason, TuneResult, TuneRow } from './result.js';
 
 /** A posterior sigma above the prior's over root 2 means that the recording tells less than was known. */
 const LEAST_GAIN = Math.SQRT1_2;
@@ -156,6 +157,7 @@ export function describe(
       with: with_,
     };
   });
+  const settled = fits.map((fit) => fit.converged);
   const hours = (sign: number) =>
     record.bins.reduce((sum, b) => sum + (Math.sign(b.flow_kg_s) === sign ? b.dt_s : 0), 0) / 3600;
   return {
@@ -173,7 +175,7 @@ export function describe(
       converged: fit.converged,
       left_out: fit.leftOut,
     })),
-    configure: configureOf(unit, rows, work),
+    configure: configureOf(unit, rows, settled),
   };
 }
 
@@ -223,41 +225,4 @@ function judge(form: Form, sigma: number, correlation: number): TuneReason | nul
       : 'tells_less_than_known';
   }
   return Math.abs(correlation) > MOST_CORRELATION ? 'moves_with_another' : null;
-}
-
-/**
- * Factors for the configuration. The tubes learn their flow factor anew: with heat capacity c written
- * down it settles at way x c, and the machine's power per kilogram of that flow is work/(way c).
- */
-function configureOf(
-  unit: UnitDefinition,
-  rows: readonly TuneRow[],
-  work: Readonly<Record<Direction, MachineWork | null>>,
-): TuneConfigure {
-  const row = (store: string | null, name: Tunable) =>
-    rows.find((one) => one.store === store && one.name === name) as TuneRow;
-  const told = (store: string, name: Tunable) => {
-    const one = row(store, name);
-    return one.determined ? one.value : null;
-  };
-  const flows = unit.stores.map((store) => {
-    const before = store.bed.heat_capacity_factor;
-    return (
-      row(store.id, 'front_travel').value * ((told(store.id, 'heat_capacity') ?? before) / before)
-    );
-  });
-  const flow = flows.reduce((sum, f) => sum + f, 0) / flows.length;
-  const factor = (direction: Direction): number | null =>
-    work[direction] === null ? null : row(null, `work_${direction}`).value / flow;
-  return {
-    work_factor: { charge: factor('charge'), discharge: factor('discharge') },
-    stores: unit.stores.map((store) => ({
-      id: store.id,
-      heat_transfer: told(store.id, 'heat_transfer'),
-      conductivity: told(store.id, 'conductivity'),
-      loss: told(store.id, 'loss'),
-      heat_capacity: told(store.id, 'heat_capacity'),
-      gas_share: told(store.id, 'gas_share'),
-    })),
-  };
 }

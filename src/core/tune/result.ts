@@ -61,7 +61,7 @@ export interface TuneResult {
   /** Of all rows with each other, in their order; 0 with a row that tells nothing. */
   readonly correlations: readonly (readonly number[])[];
   readonly fits: readonly TuneFitQuality[];
-  /** Factors for the configuration that go with each other, null where not determined. */
+  /** Factors for the configuration that go with each other, null where not determined or settled. */
   readonly configure: TuneConfigure;
 }
 
