@@ -1,6 +1,6 @@
 import type { RejectedSensor } from '../../core/estimate.js';
-import type { SensorWorth, StoreWorth } from '../../core/worth/sensorWorth.js';
 import type { Spread } from '../../core/worth/spread.js';
+import type { SensorWorth, StoreWorth } from '../../core/worth/storeWorth.js';
 import type { UnitWorth, WorthOver } from '../../core/worth/unitWorth.js';
 import { table } from '../table.js';
 

@@ -1,7 +1,6 @@
 import { halfCycle } from '../cycle/settledCycle.js';
 import type { Direction, Mode } from '../definitions.js';
 import type { RejectedSensor } from '../estimate.js';
-import { rejectedSensors } from '../track/storeEstimate.js';
 import type { StoreModel, StoreState } from '../track/storeTracker.js';
 import { streamsOf } from '../track/streams.js';
 import type { UnitModel } from '../unitModel.js';
@@ -14,6 +13,7 @@ import {
   readSeldom,
   STANDING_STEP_S,
 } from './course.js';
+import { outOfUse } from './outOfUse.js';
 
 /** What lies ahead of a unit as it is now. */
 export interface PresentCourse {
@@ -46,9 +46,7 @@ export function presentCourse(model: UnitModel, state: UnitState): PresentCourse
   return {
     mode,
     hours: seconds / HOUR_S,
-    rejected: model.stores.flatMap((store, s) =>
-      rejectedSensors(store, state.stores[s] as StoreState),
-    ),
+    rejected: model.stores.flatMap((store, s) => outOfUse(store, state.stores[s] as StoreState)),
     course: {
       steps: readSeldom(steps),
       loss_at: 0,

@@ -4,13 +4,13 @@ import type { Scan } from '../scan/scan.js';
 import { readConditions } from '../track/conditions.js';
 import { driveOf, storeOutlets, unknownTravel } from '../track/drive.js';
 import { withoutImplausible } from '../track/plausible.js';
-import { rejectedSensors } from '../track/storeEstimate.js';
 import type { StoreState } from '../track/storeTracker.js';
 import type { TubeDrive } from '../track/tube.js';
 import { advance, startUnit } from '../unit.js';
 import { type UnitModel, unitModel } from '../unitModel.js';
 import type { UnitState } from '../unitState.js';
 import type { Course, CourseStep, TubeMean } from './course.js';
+import { outOfUse } from './outOfUse.js';
 
 /** A course in the making: the estimator runs along, and its means are kept. */
 export interface CourseRecorder {
@@ -34,6 +34,7 @@ const STEP_S = 300;
 export const LEAST_COURSE_S = 4 * 3600;
 const ASK = { hours_at_W: [], profile: false };
 
+/** A recorder with nothing taken yet; its course begins once every store has started. */
 export function recordCourse(unit: UnitDefinition): CourseRecorder {
   return { model: unitModel(unit), state: startUnit(unit), steps: [], start: null, open: null };
 }
@@ -101,6 +102,27 @@ function joined(a: TubeDrive, b: TubeDrive): TubeDrive {
     ambient_K: mean(a.ambient_K, b.ambient_K),
     dt_s,
     travelSigma_m: Math.hypot(a.travelSigma_m, b.travelSigma_m),
+    ...standing(a, b),
+  };
+}
+
+/** Gas at both ends while standing, as a mean over time of what was read. */
+function standing(a: TubeDrive, b: TubeDrive): Pick<TubeDrive, 'standing_K'> {
+  const [x, y] = [a.standing_K, b.standing_K];
+  if (x === undefined || y === undefined) {
+    const one = x ?? y;
+    return one === undefined ? {} : { standing_K: one };
+  }
+  const mean = (end: keyof typeof x): number => {
+    if (!Number.isFinite(x[end])) return y[end];
+    if (!Number.isFinite(y[end])) return x[end];
+    return (x[end] * a.dt_s + y[end] * b.dt_s) / (a.dt_s + b.dt_s);
+  };
+  return {
+    standing_K: {
+      charge_inlet: mean('charge_inlet'),
+      discharge_inlet: mean('discharge_inlet'),
+    },
   };
 }
 
@@ -126,7 +148,7 @@ function close(recorder: CourseRecorder): void {
 
 /**
  * The course of what was taken: a quarter of the time with all thermocouples, a quarter for the
- * loss to tell, and sigmas over the rest. Those rejected at its end count as out of use throughout.
+ * loss to tell, and sigmas over the rest. Those out of use at its end count as such throughout.
  *
  * @returns null where it covers less than `LEAST_COURSE_S` since every store has started
  */
@@ -144,7 +166,7 @@ export function courseOf(
   if (start === null || covered_s < LEAST_COURSE_S) return null;
   const after = (share: number): number => ends.findIndex((t) => t >= share * covered_s) + 1;
   const rejected = model.stores.flatMap((store, s) =>
-    rejectedSensors(store, state.stores[s] as StoreState),
+    outOfUse(store, state.stores[s] as StoreState),
   );
   return {
     course: {

@@ -24,6 +24,7 @@ export interface Tally {
   rise_in: Mode | null;
 }
 
+/** Sums over no time at all. */
 export function startTally(): Tally {
   return {
     time_s: 0,

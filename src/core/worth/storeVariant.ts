@@ -15,6 +15,7 @@ export interface StoreVariant {
   readonly string: Tally;
 }
 
+/** A variant with nothing counted yet; `tubes` by index in the store, none = the store as it is. */
 export function variantOf(tubes: ReadonlyMap<number, WeighedTube>): StoreVariant {
   return { tubes, store: startTally(), string: startTally() };
 }

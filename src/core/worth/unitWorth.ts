@@ -4,7 +4,8 @@ import { unitModel } from '../unitModel.js';
 import type { UnitState } from '../unitState.js';
 import { type Course, cycleCourse } from './course.js';
 import { presentCourse } from './presentCourse.js';
-import { type StoreWorth, weighSensors } from './sensorWorth.js';
+import { weighSensors } from './sensorWorth.js';
+import type { StoreWorth } from './storeWorth.js';
 
 /** What sigmas were followed along. */
 export type WorthOver =

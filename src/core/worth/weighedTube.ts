@@ -33,6 +33,12 @@ export interface WeighedTube {
   readonly reads: readonly boolean[];
 }
 
+/**
+ * A tube to be weighed.
+ *
+ * @param reads whether the thermocouple with an id is read
+ * @param state what is known at the start, changed in place; without it nothing is
+ */
 export function weighedTube(
   model: TubeModel,
   reads: (id: string) => boolean,

@@ -2,11 +2,9 @@ import { enthalpyAt } from '../../../src/core/bed/tables.js';
 import type { StoreModel } from '../../../src/core/track/storeTracker.js';
 import type { TubeDrive } from '../../../src/core/track/tube.js';
 import type { Course, CourseStep } from '../../../src/core/worth/course.js';
-import {
-  type StoreWorth,
-  type WorthOptions,
-  weighSensors,
-} from '../../../src/core/worth/sensorWorth.js';
+import { weighSensors } from '../../../src/core/worth/sensorWorth.js';
+import type { StoreWorth } from '../../../src/core/worth/storeWorth.js';
+import type { WorthOptions } from '../../../src/core/worth/variants.js';
 
 /** S-shaped front at a share of the bed's length in every tube [J/m3]. */
 export function frontAt(store: StoreModel, middle: number, width = 0.1): Float64Array[] {

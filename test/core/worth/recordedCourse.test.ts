@@ -57,6 +57,22 @@ describe('a course from a recording of the finer plant', () => {
     expect(new Set(flux('stand').slice(1))).toEqual(new Set([0]));
   });
 
+  it('keeps what a leak would carry in while it stands: gas at both ends, between its readings', () => {
+    const stood = course.steps.filter((s) => s.drives.every((d) => d.massFlux_kg_m2s === 0));
+    expect(stood.length).toBeGreaterThan(5);
+    for (const [s, store] of unit.stores.entries()) {
+      for (const end of ['charge_inlet', 'discharge_inlet'] as const) {
+        const at = unitModel(unit).map.gas[store.id]![end];
+        const read = recorded.map((scan) => scan.values[at]!);
+        for (const step of stood) {
+          const gas_K = step.drives[s]!.standing_K![end];
+          expect(gas_K).toBeGreaterThanOrEqual(Math.min(...read));
+          expect(gas_K).toBeLessThanOrEqual(Math.max(...read));
+        }
+      }
+    }
+  });
+
   it('follows the means of the estimator', () => {
     const last = course.steps.at(-1)!;
     expect(last.means![0]![2]!.enthalpy).toEqual(state.stores[0]!.tubes[2]!.enthalpy);

@@ -1,0 +1,54 @@
+import { temperatureAt } from '../bed/tables.js';
+import { type StartReading, startTube } from '../track/start.js';
+import { type StoreModel, type StoreState, startStore } from '../track/storeTracker.js';
+import type { TubeModel, TubeState } from '../track/tube.js';
+import { followOrigin } from '../track/unseenFlow.js';
+import { resetWall } from '../track/wallZone.js';
+
+/**
+ * A store that knows nothing but stands where the course begins. A tube of whose string no
+ * thermocouple is in use knows what the other strings read there, as in a start of the estimator.
+ *
+ * @param start enthalpy at the start, by tube [J/m3 of bed]
+ * @param out_of_use ids of thermocouples that are not read
+ */
+export function freshState(
+  store: StoreModel,
+  start: readonly Float64Array[],
+  out_of_use: ReadonlySet<string>,
+): StoreState {
+  const state = startStore(store);
+  state.started = true;
+  const places = readPlaces(store, start, out_of_use);
+  state.tubes.forEach((tube, k) => {
+    // As `restart` does: drawn through the other strings where its own has nothing.
+    if (places.length >= 2 && !places.some((place) => place.tube === k)) {
+      startTube(store.tubes[k] as TubeModel, tube, places, 1);
+    }
+    tube.enthalpy.set(start[k] as Float64Array);
+  });
+  if (store.wall !== null && state.wall !== null) {
+    const beside = state.tubes[store.wall.tube] as TubeState;
+    resetWall(store.tables, state.wall, beside);
+  }
+  followOrigin(store, state, true);
+  return state;
+}
+
+/** What the thermocouples in use would read at the start, all as of another string. */
+function readPlaces(
+  store: StoreModel,
+  start: readonly Float64Array[],
+  out_of_use: ReadonlySet<string>,
+): (StartReading & { readonly tube: number })[] {
+  const { length_m } = store.store.bed;
+  return store.tubes.flatMap(({ string, layout: { cells } }, tube) =>
+    string.thermocouples
+      .filter(({ id }) => !out_of_use.has(id))
+      .map(({ position_m }) => {
+        const cell = Math.min(cells - 1, Math.floor((position_m / length_m) * cells));
+        const value_K = temperatureAt(store.tables, start[tube]?.[cell] as number);
+        return { tube, position_m, value_K, sensor: -1 };
+      }),
+  );
+}
