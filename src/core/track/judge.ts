@@ -19,6 +19,8 @@ export const GATE_SIGMAS = 4.5;
 const OUTSIDE_SCANS = 5;
 const SOUND_SIGMAS = 3;
 const SOUND_SCANS = 20;
+/** An offset within the class: two sigma are its tolerance. */
+const CLASS_SIGMAS = 2;
 const STUCK_S = 600;
 /** A stuck sensor must have moved this often again before it is believed. */
 const STUCK_CHANGES = 5;
@@ -50,14 +52,17 @@ export type Judgement = 'use' | 'soften' | 'leave_out';
  *   steady is never stuck.
  * - `uncovered`: the topmost reads as the gas that enters there and not as rock, for five scans.
  * - `offset` / `drifting`: five scans in a row outside 4.5 sigma without support from the sensors
- *   beside it; drifting where the innovation grew by a third or more since the first of them. Slow
- *   drift and an offset beyond the class are told by its usual deviation (see judgeUsual).
+ *   beside it; drifting where the innovation grew by a third or more since the first of them, and by
+ *   more than it had leapt at that first. Slow drift and an offset beyond the class are told by its
+ *   usual deviation (see judgeUsual).
  * - `wrong_type`: it was off, and reads what another type's table makes of the rock's temperature.
  * - `outlier`: three wild readings, each back within five scans, none more than an hour from the next.
  *
  * A rejected sensor returns after 20 scans in a row within 3 sigma and within half of what it was off
- * by; a stuck one must also have changed its value again, since the rock passes its frozen value
- * twice in every cycle, and a wrongly wired one must have followed the rock's movement.
+ * by (a slow drift: back by half of what it moved by from what was usual), taken where the rest tells
+ * the rock well enough to show that; a stuck one must also have changed its value again, since the
+ * rock passes its frozen value twice in every cycle, and a wrongly wired one must have followed the
+ * rock's movement.
  */
 export function judgeSensor(memory: SensorMemory, evidence: SensorEvidence): Judgement {
   const { value_K: value, time_ms } = evidence;
@@ -97,12 +102,16 @@ export function judgeSensor(memory: SensorMemory, evidence: SensorEvidence): Jud
 function judgeRecovery(memory: SensorMemory, evidence: SensorEvidence, innovation: number): void {
   const off = Math.abs(innovation);
   const limit = memory.off_K > 0 ? memory.off_K / 2 : Number.POSITIVE_INFINITY;
-  if (off > Math.min(SOUND_SIGMAS * evidence.sigma_K, limit) || isStuck(memory, evidence)) {
+  const side = memory.driftSide;
+  const away = side === 0 ? off : side * (innovation - memory.mended_K);
+  if (off > SOUND_SIGMAS * evidence.sigma_K || away > limit || isStuck(memory, evidence)) {
     memory.sound = 0;
     return;
   }
-  // Where what it was off by would not stand outside the gate, nothing is learned.
-  if (GATE_SIGMAS * evidence.sigma_K > 2 * limit) return;
+  // Where what it was off by would not stand outside the gate, nothing is learned. Its own offset is
+  // that of a stranger again and no part of it: only how well the rest tells the rock there is.
+  const told = Math.hypot(evidence.rockSigma_K, evidence.noiseSigma_K ?? Number.POSITIVE_INFINITY);
+  if (GATE_SIGMAS * Math.min(told, evidence.sigma_K) > 2 * limit) return;
   if (WIRING.includes(memory.verdict)) {
     if (memory.sound === 0) memory.read_K = memory.modelled_K = 0;
     else if (!movesAsRock(memory)) {
@@ -112,7 +121,10 @@ function judgeRecovery(memory: SensorMemory, evidence: SensorEvidence, innovatio
   }
   memory.sound++;
   const moves = memory.verdict !== 'stuck' || memory.changes >= STUCK_CHANGES;
-  if (memory.sound >= SOUND_SCANS && moves) clear(memory);
+  if (memory.sound < SOUND_SCANS || !moves) return;
+  // A mended or exchanged one has an offset of its own, and what was usual may have been learned wrong.
+  if (side !== 0) memory.usual_K = Number.NaN;
+  clear(memory);
 }
 
 function judgeSound(memory: SensorMemory, evidence: SensorEvidence, innovation: number): Judgement {
@@ -134,6 +146,12 @@ function judgeSound(memory: SensorMemory, evidence: SensorEvidence, innovation: 
   const fault = supported ? null : usualFault(memory, evidence);
   if (fault !== null) {
     set(memory, fault.verdict, time_ms, fault.evidence, fault.off_K);
+    if (fault.verdict === 'drifting') {
+      memory.driftSide = Math.sign(memory.recent_K - memory.usual_K);
+      // What its class does not allow was no offset of its own: it was learned from a bent profile.
+      const own = Math.abs(memory.usual_K) <= CLASS_SIGMAS * evidence.offsetSigma_K;
+      memory.mended_K = own ? memory.usual_K : 0;
+    }
     return 'leave_out';
   }
   const within = Math.abs(innovation) <= GATE_SIGMAS * evidence.sigma_K;
@@ -142,6 +160,7 @@ function judgeSound(memory: SensorMemory, evidence: SensorEvidence, innovation: 
     if (memory.verdict === 'outlier') return 'leave_out';
     memory.outside = 0;
     memory.inGas = 0;
+    memory.inside_K = innovation;
     return within ? 'use' : 'soften';
   }
   if (memory.outside === 0) memory.firstOutside_K = innovation;
@@ -155,12 +174,22 @@ function judgeSound(memory: SensorMemory, evidence: SensorEvidence, innovation: 
     const text = `reads ${(evidence.value_K - 273.15).toFixed(1)} degC like the gas that enters there, ${Math.abs(innovation).toFixed(1)} K from the rock`;
     set(memory, 'uncovered', time_ms, text, innovation);
   } else if (memory.outside >= OUTSIDE_SCANS) {
-    const grown = Math.abs(innovation) > 1.33 * Math.abs(memory.firstOutside_K);
     const sigmas = Math.abs(innovation) / evidence.sigma_K;
     const text = `${innovation.toFixed(1)} K from the estimate (${sigmas.toFixed(1)} sigma) for ${memory.outside} scans`;
-    set(memory, grown ? 'drifting' : 'offset', time_ms, text, innovation);
+    set(memory, hasGrown(memory, innovation) ? 'drifting' : 'offset', time_ms, text, innovation);
   }
   return 'leave_out';
+}
+
+/**
+ * A drift comes step by step: four more scans add more than the one before them did. What leapt
+ * and then grew by less is a step that a front passes.
+ */
+function hasGrown(memory: SensorMemory, innovation: number): boolean {
+  const first = Math.abs(memory.firstOutside_K);
+  const since = Math.abs(innovation) - first;
+  const leapt = Math.abs(memory.firstOutside_K - memory.inside_K);
+  return since > 0.33 * first && !(leapt > since);
 }
 
 /** A wild reading has come back: three within an hour of one another are no chance. */

@@ -24,12 +24,17 @@ export interface SensorMemory extends Movement, Usual, Start {
   /** Scans in a row outside the gate, and the innovation at the first of them [K]. */
   outside: number;
   firstOutside_K: number;
+  /** Innovation when it was last used [K], NaN where it was not since it was believed. */
+  inside_K: number;
   /** Scans in a row that a rejected sensor has looked sound. */
   sound: number;
   /** Times that the value changed since the verdict, capped at SOUND_SCANS. */
   changes: number;
   /** How far it was off when the verdict was given [K]; 0 = not known. */
   off_K: number;
+  /** To which side a slow drift went, 0 = it was none; and what it deviated by before that [K]. */
+  driftSide: number;
+  mended_K: number;
   /** Scans in a row in which a reading of the kind of a wiring fault was seen. */
   miswired: number;
   /** Wild readings that came back within OUTSIDE_SCANS, and when the last one was. */
@@ -37,6 +42,9 @@ export interface SensorMemory extends Movement, Usual, Start {
   spike_ms: number;
   /** Step that its card or cold junction has taken [K]; it is taken off the reading. */
   shift_K: number;
+  /** When its group was found out, and how, for as long as a step is taken off. */
+  groupSince_ms: number;
+  groupEvidence: string;
   /** Until when the junction has not followed a change of the flow; the lag then [m]. */
   unsettled_ms: number;
   lag_m: number;
@@ -49,6 +57,7 @@ export interface SensorMemory extends Movement, Usual, Start {
   swapWith: number;
 }
 
+/** A sensor of which nothing is known yet: no verdict, no step, temperatures NaN until they are read [K]. */
 export function freshSensor(): SensorMemory {
   return {
     verdict: null,
@@ -62,13 +71,18 @@ export function freshSensor(): SensorMemory {
     expected_K: Number.NaN,
     outside: 0,
     firstOutside_K: 0,
+    inside_K: Number.NaN,
     sound: 0,
     changes: 0,
     off_K: 0,
+    driftSide: 0,
+    mended_K: 0,
     miswired: 0,
     spikes: 0,
     spike_ms: 0,
     shift_K: 0,
+    groupSince_ms: 0,
+    groupEvidence: '',
     unsettled_ms: 0,
     lag_m: Number.NaN,
     reach_m: 0,
@@ -108,6 +122,8 @@ export interface SensorEvidence {
   readonly predicted_K: number;
   /** Standard deviation of the innovation [K]. */
   readonly sigma_K: number;
+  /** Of the reading alone [K]; without it the rock is not told from its own offset. */
+  readonly noiseSigma_K?: number;
   /** The rock there, told without the sensor's own offset, and its sigma [K]; see Candidate. */
   readonly rock_K: number;
   readonly rockSigma_K: number;
@@ -144,6 +160,7 @@ export function set(
   memory.since_ms = time_ms;
   memory.evidence = evidence;
   memory.off_K = Math.abs(off_K);
+  memory.driftSide = 0;
   memory.sound = 0;
   memory.changes = 0;
 }
@@ -179,6 +196,8 @@ export function shiftWithGroup(
   by_K: number,
 ): void {
   memory.shift_K += by_K;
+  memory.groupSince_ms = time_ms;
+  memory.groupEvidence = evidence;
   if (isBelieved(memory)) set(memory, 'group_fault', time_ms, evidence, 0);
   memory.outside = 0;
 }
@@ -186,15 +205,22 @@ export function shiftWithGroup(
 /** The group's offset is back within its class. */
 export function releaseFromGroup(memory: SensorMemory): void {
   memory.shift_K = 0;
+  memory.groupSince_ms = 0;
+  memory.groupEvidence = '';
   if (memory.verdict === 'group_fault') clear(memory);
 }
 
+/** Ends the sensor's own verdict; while a step of its group is taken off [K], that verdict shows again. */
 export function clear(memory: SensorMemory): void {
-  memory.verdict = null;
-  memory.evidence = '';
+  const shifted = memory.shift_K !== 0;
+  memory.verdict = shifted ? 'group_fault' : null;
+  if (shifted) memory.since_ms = memory.groupSince_ms;
+  memory.evidence = shifted ? memory.groupEvidence : '';
   memory.outside = 0;
   memory.sound = 0;
   memory.off_K = 0;
+  memory.driftSide = 0;
+  memory.inside_K = Number.NaN;
   memory.miswired = 0;
   memory.spikes = 0;
   memory.inGas = 0;

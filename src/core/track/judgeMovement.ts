@@ -31,6 +31,7 @@ const LEAP_SIGMAS = 4.5;
 /** Movement of the rock from which on wiring faults can be told [K]: eight sigma of a reading's noise. */
 export const MOVES_K = 4;
 
+/** Adds a scan's change of reading and of the rock by the model alone [K] to what it remembers. */
 export function followMovement(
   memory: Movement & { readonly expected_K: number; readonly unsettled_ms: number },
   evidence: {

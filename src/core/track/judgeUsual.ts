@@ -56,6 +56,7 @@ const BEYOND_S = 300;
 
 const gainAt = (kelvin: number): number => (kelvin < 273.15 ? GAIN_COLD : GAIN_HOT);
 
+/** Learns from one scan what the sensor deviates by of late and usually [K]; nothing is learned in the front. */
 export function followUsual(memory: Usual, evidence: UsualEvidence): void {
   const rock = evidence.rock_K;
   const d = evidence.value_K - rock;

@@ -49,6 +49,7 @@ export interface JudgeWork {
   readonly reading: ReadingModel;
 }
 
+/** Reading, without the step of its group, less its prediction [K]; NaN = missing. */
 export const innovation = (c: Candidate): number => c.value_K - c.reading.value_K;
 
 const emptyReading = (): ReadingModel => ({
@@ -64,6 +65,7 @@ const known = new WeakMap<StoreModel, JudgeWork>();
 /** Sensors at one height: within this share of the bed's length. */
 const LEVEL_SHARE = 1 / 40;
 
+/** The store's candidates and groups, made once for a model; one array of them over all tubes. */
 export function judgeWork(model: StoreModel): JudgeWork {
   const before = known.get(model);
   if (before !== undefined) return before;
@@ -101,6 +103,9 @@ export function judgeWork(model: StoreModel): JudgeWork {
   return work;
 }
 
+/** A covariance below this share of the variance is rounding. */
+const ROUNDING = 1e-9;
+
 /** Prediction, P H' and innovation sigma of every thermocouple of a tube, missing ones included. */
 export function predictTubeReadings(
   model: StoreModel,
@@ -126,11 +131,14 @@ export function predictTubeReadings(
     const left = tube.estimator.offset_sigma_K ** 2 - ownVariance;
     const rest = Math.max(1e-6, projected - cross - (c.v[own] as number));
     const place = tubeState.further[layout.position + sensor - layout.cells] as number;
+    // Where it has no say in the rest, as after judgeUndo, nothing of it is in what they tell.
+    const apart = Math.abs(cross) < ROUNDING * ownVariance;
     c.rock_K =
       c.reading.value_K -
       offset -
       place * c.reading.slope_K_m +
-      (left > 0 ? (cross * offset) / left : 0);
-    c.rockSigma_K = left > 0 ? Math.sqrt(rest + (cross * cross) / left) : Number.POSITIVE_INFINITY;
+      (left > 0 && !apart ? (cross * offset) / left : 0);
+    c.rockSigma_K = Number.POSITIVE_INFINITY;
+    if (left > 0 || apart) c.rockSigma_K = Math.sqrt(rest + (apart ? 0 : (cross * cross) / left));
   }
 }

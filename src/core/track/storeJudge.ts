@@ -42,6 +42,7 @@ export function judgeAll(
       othersPresent: present > 0,
       predicted_K: c.reading.value_K,
       sigma_K: c.sigma_K,
+      noiseSigma_K: Math.sqrt(c.variance_K2),
       rock_K: c.rock_K,
       rockSigma_K: c.rockSigma_K,
       placeSigma_K:

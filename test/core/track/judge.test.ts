@@ -156,6 +156,20 @@ describe('offset and drifting', () => {
     expect(memory.verdict).toBe('drifting');
   });
 
+  it('is an offset where it leapt, though a front that passes makes it grow by half', () => {
+    const { memory, scan, sound } = watched();
+    for (let k = 0; k < 10; k++) sound();
+    for (let k = 0; k < 5; k++) scan(508 + k);
+    expect(memory.verdict).toBe('offset');
+  });
+
+  it.each([2, 8, -8])('is drifting where it goes on as it came, by %d K a scan', (rate) => {
+    const { memory, scan, sound } = watched();
+    for (let k = 0; k < 10; k++) sound();
+    for (let k = 1; memory.verdict === null; k++) scan(500 + rate * k);
+    expect(memory.verdict).toBe('drifting');
+  });
+
   it('counts to either side', () => {
     const { memory, scan } = watched();
     for (let k = 0; k < 5; k++) scan(492 - 0.01 * (k % 2));
@@ -172,6 +186,65 @@ describe('offset and drifting', () => {
     expect(memory.verdict).toBe('offset');
     sound();
     expect(memory.verdict).toBeNull();
+  });
+});
+
+describe('a slow drift that was named at less than 5 K', () => {
+  // As the filter has it after judgeUndo: 1 K of the own offset's prior is in the innovation.
+  const told = { sigma_K: Math.hypot(0.3, 0.4, 1), noiseSigma_K: 0.4, rockSigma_K: 0.3 };
+
+  it.each([0, -1.5, 1.5])(
+    'stays out while it lasts and is used again when mended, off by %d K',
+    (own) => {
+      const { memory, sound } = watched(told);
+      // The own offset is learned into the prediction; the rock is told without it.
+      const reads = (error: number, scans: number) => {
+        for (let k = 0; k < scans; k++) {
+          const predicted_K = memory.verdict === null ? 500 + own : 500;
+          sound({ value_K: 500 + own + error + 0.2 * (k % 2), predicted_K, rock_K: 500 });
+        }
+      };
+      reads(0, 300);
+      for (let k = 1; k <= 180; k++) reads((4.5 * k) / 180, 1);
+      expect(memory.verdict).toBe('drifting');
+      expect(memory.off_K).toBeLessThan(4.5);
+      reads(4.5, 600);
+      expect(memory.verdict).toBe('drifting');
+      reads(0, 19);
+      expect(memory.verdict).toBe('drifting');
+      reads(0, 1);
+      expect(memory.verdict).toBeNull();
+    },
+  );
+
+  it('ends where it was named against a profile that was bent, as no class allows, and is learned anew', () => {
+    const { memory, sound } = watched(told);
+    // The bent profile has it 6 K low; then the front passes and it is right.
+    const reads = (d: number, scans: number) => {
+      for (let k = 0; k < scans; k++) {
+        const value_K = 500 + 0.2 * (k % 2);
+        sound({ value_K, predicted_K: 500, rock_K: 500 - d });
+      }
+    };
+    reads(-6, 90);
+    for (let k = 0; memory.verdict === null && k < 100; k++) reads(0, 1);
+    expect(memory.verdict).toBe('drifting');
+    reads(0, 20);
+    expect(memory.verdict).toBeNull();
+    reads(0, 300);
+    expect(memory.verdict).toBeNull();
+  });
+
+  it('stays out while the rock there is not told well enough to show it', () => {
+    const { memory, sound } = watched(told);
+    let n = 0;
+    const reads = (error: number, over: Partial<SensorEvidence> = {}) =>
+      sound({ value_K: 500 + error + 0.2 * (n++ % 2), ...over });
+    for (let k = 0; k < 300; k++) reads(0);
+    for (let k = 1; k <= 180; k++) reads((4.5 * k) / 180);
+    const blind = { sigma_K: 3, rockSigma_K: 2.5 };
+    for (let k = 0; k < 100; k++) reads(0, blind);
+    expect(memory.verdict).toBe('drifting');
   });
 });
 
@@ -264,6 +337,28 @@ describe('group_fault', () => {
     shiftWithGroup(memory, 0, 'the whole card moved', 5);
     for (let k = 0; k < 5; k++) scan(520);
     expect(memory.verdict).toBe('offset');
+  });
+
+  it.each([
+    ['a missing reading', [Number.NaN]],
+    ['a burst', [950, ...Array.from({ length: 20 }, (_, k) => 500 + 0.2 * (k % 2))]],
+  ])('shows again, since when and why, after %s of its own', (_, values) => {
+    const { memory, scan, sound } = watched();
+    sound();
+    shiftWithGroup(memory, 60_000, 'the whole card moved', 8);
+    sound();
+    for (const value of values) scan(value);
+    expect(sound()).toBe('use');
+    expect(memory).toMatchObject({
+      verdict: 'group_fault',
+      since_ms: 60_000,
+      evidence: 'the whole card moved',
+      shift_K: 8,
+    });
+    scan(Number.NaN);
+    releaseFromGroup(memory);
+    sound();
+    expect(memory).toMatchObject({ verdict: null, evidence: '', shift_K: 0 });
   });
 
   it('ends with the step of its group', () => {

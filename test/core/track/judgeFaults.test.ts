@@ -110,6 +110,21 @@ describe('a step of a card or cold junction', () => {
     );
   });
 
+  it('stays listed when one of its readings is missing for a scan', () => {
+    const store = watched({ strings: 3 });
+    const card = add(8, (i) => i < SENSORS);
+    store.run(90);
+    store.run(5, card);
+    const before = store.rejected();
+    store.run(1, (values, was, n) => {
+      card(values, was, n);
+      values[3] = Number.NaN;
+    });
+    expect(store.verdicts()).toContain('s0_4 open');
+    store.run(1, card);
+    expect(store.rejected()).toEqual(before);
+  });
+
   it('is seen where the group is all of the store', () => {
     const store = watched();
     store.run(90);
@@ -178,6 +193,32 @@ describe('a topmost thermocouple that the bed has left', () => {
     });
     expect(store.verdicts()).toEqual(['s0_1 uncovered']);
     expect(store.rejected()[0]?.evidence).toMatch(/like the gas/);
+  });
+});
+
+describe('a thermocouple that drifted by 4.5 K', () => {
+  it('is left out while that lasts, and used again half an hour after it was mended', () => {
+    // The front has passed it: the gas that enters tells the rock there well.
+    const store = watched();
+    const drifted =
+      (at: (n: number) => number): Fault =>
+      (values, _, n) => {
+        values[1] = (values[1] as number) + at(n);
+      };
+    store.run(270);
+    store.run(
+      240,
+      drifted((n) => Math.min(4.5, n / 40)),
+    );
+    expect(store.verdicts()).toEqual(['s0_2 drifting']);
+    store.run(
+      240,
+      drifted(() => 4.5),
+    );
+    expect(store.verdicts()).toEqual(['s0_2 drifting']);
+    store.run(30);
+    expect(store.verdicts()).toEqual([]);
+    expect(store.state.used).toBe(SENSORS);
   });
 });
 
