@@ -5,6 +5,7 @@ import type { Conditions } from '../track/conditions.js';
 import { driveOf } from '../track/drive.js';
 import type { StoreState } from '../track/storeTracker.js';
 import type { TubeDrive, TubeState } from '../track/tube.js';
+import type { WallState } from '../track/wallZone.js';
 import type { UnitModel } from '../unitModel.js';
 
 /** A tube's mean as the covariance needs it: where the front stands, and the factors. */
@@ -19,6 +20,8 @@ export interface CourseStep {
   readonly scans: number;
   /** Mean of each store's tubes after the step; absent where the model alone moves it. */
   readonly means?: readonly (readonly TubeMean[])[];
+  /** With the means: the layers at each store's wall, null where there are none. */
+  readonly walls?: readonly (WallState | null)[];
 }
 
 /**

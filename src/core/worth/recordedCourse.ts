@@ -142,7 +142,8 @@ function close(recorder: CourseRecorder): void {
       }),
     ),
   );
-  recorder.steps.push({ mode: open.mode, drives: open.drives, scans: open.scans, means });
+  const walls = structuredClone(state.stores.map(({ wall }) => wall));
+  recorder.steps.push({ mode: open.mode, drives: open.drives, scans: open.scans, means, walls });
   recorder.open = null;
 }
 

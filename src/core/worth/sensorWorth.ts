@@ -1,7 +1,7 @@
 import type { StoreModel, StoreState } from '../track/storeTracker.js';
 import type { TubeModel, TubeScratch } from '../track/tube.js';
 import { followOrigin } from '../track/unseenFlow.js';
-import { stepWall } from '../track/wallZone.js';
+import { stepWall, type WallState } from '../track/wallZone.js';
 import type { Course, CourseStep, TubeMean } from './course.js';
 import { freshState } from './freshState.js';
 import { storeSigmas, tallyVariant } from './storeVariant.js';
@@ -53,6 +53,7 @@ export function* weighSensors(
     const drive = step.drives[s] as CourseStep['drives'][number];
     for (const tube of base) stepWeighed(tube, drive, step.scans);
     moveMean(store, state, base, step, s);
+    state.known_s += drive.dt_s;
     if (variants !== null) {
       for (const { k, tube } of variants.tubes) {
         stepWeighed(tube, drive, step.scans);
@@ -89,6 +90,7 @@ function moveMean(
     base.forEach((tube, k) => {
       takeMean(tube, recorded[k] as TubeMean, tube.model.layout);
     });
+    takeWall(state, step.walls?.[s] ?? null);
     return;
   }
   if (store.wall === null || state.wall === null) return;
@@ -96,6 +98,16 @@ function moveMean(
   const { model, state: tube } = base[k] as WeighedTube;
   const drive = step.drives[s] as CourseStep['drives'][number];
   stepWall(store.wall, model, tube, state.wall, drive, store.scratch[k] as TubeScratch);
+}
+
+/** Layers at the wall as recorded: what they lag behind the string is a part of sigma. */
+function takeWall({ wall }: StoreState, recorded: WallState | null): void {
+  if (wall === null || recorded === null) return;
+  recorded.enthalpy.forEach((own, l) => {
+    (wall.enthalpy[l] as Float64Array).set(own);
+  });
+  wall.steel_K.set(recorded.steel_K);
+  wall.outlet_K.set(recorded.outlet_K);
 }
 
 /** Steps of tubes that a course takes, for progress: about right, a shared tube counts twice. */

@@ -77,6 +77,9 @@ describe('a course from a recording of the finer plant', () => {
     const last = course.steps.at(-1)!;
     expect(last.means![0]![2]!.enthalpy).toEqual(state.stores[0]!.tubes[2]!.enthalpy);
     expect(last.means![1]![0]!.further).toEqual(state.stores[1]!.tubes[0]!.further);
+    expect(state.stores[0]!.wall).not.toBeNull();
+    expect(last.walls).toEqual(state.stores.map((store) => store.wall));
+    expect(course.steps[0]!.walls).not.toEqual(last.walls);
   });
 
   it('counts what is rejected at its end as out of use, and says what its repair would do', () => {
