@@ -52,8 +52,12 @@ describe('rockhour tune', () => {
     expect(fragment).toContain('# conductivity: not determined');
     expect(fragmentFaults(CONFIG, fragment)).toEqual([]);
     const { site } = parseSite(mergeFragment(readFileSync(CONFIG, 'utf8'), fragment), 'config');
-    expect(site!.units[0]!.stores[0]!.bed.heat_transfer_factor).not.toBe(1);
-    expect(site!.units[0]!.stores[0]!.bed.conductivity_factor).toBe(1);
+    // So short a recording need not settle the search in every store: what has not is left out.
+    const settled = result.fits.map((fit: { converged: boolean }) => fit.converged);
+    expect(settled).toContain(true);
+    const stores = site!.units[0]!.stores;
+    expect(stores.map(({ bed }) => bed.heat_transfer_factor !== 1)).toEqual(settled);
+    expect(stores.map(({ bed }) => bed.conductivity_factor)).toEqual([1, 1]);
 
     const text = tuneText(result);
     expect(text).toMatch(/^vellmoor: .* 2\.5 h charging, 1\.5 h discharging, 0\.5 h standing/);
