@@ -93,12 +93,13 @@ function storeOf(store: StoreDefinition, solids: 'own' | 'configured'): StoreGeo
 
 function machineOf(machine: UnitDefinition['machine']): PlantGeometry['machine'] {
   if (machine.kind === 'gas_cycle') {
-    const { gas, ...rest } = machine;
+    // What a factor of the machine's work tells is drawn in the finer plant.
+    const { gas, work_factor: _factor, ...rest } = machine;
     if (gas.name !== 'argon')
       throw new RangeError(`the finer plant's cycle runs on argon, not ${gas.name}`);
     return rest;
   }
-  const { fluid: _fluid, kind: _kind, ...rest } = machine;
+  const { fluid: _fluid, kind: _kind, work_factor: _factor, ...rest } = machine;
   return { kind: 'heater', ...rest };
 }
 

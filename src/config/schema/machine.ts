@@ -51,8 +51,9 @@ const gasCycle = z.strictObject({
   loss_follows_flow: key(
     z.number().min(0).max(1),
     '-',
-    'Share of that loss that follows the square of the flow, the loss being that at rated flow; left out where it is not known.',
+    'Share of that loss that follows the square of the flow, the loss being that at rated flow.',
     0.6,
+    'not known, and sigma grows at part load',
   ).optional(),
   cooler_approach_K: key(z.number().min(0).max(100), 'K', 'Outlet of a cooler above ambient.', 15),
   motor_efficiency: key(efficiency(), '-', 'Shaft over electrical power while charging.', 0.96),

@@ -35,9 +35,10 @@ export function followOrigin(model: StoreModel, state: StoreState, restarted: bo
 const WALL_SIGMA = 0.2;
 /**
  * At a start the rock at the wall is taken to be as the rock at the string, though it may lag by what
- * the steel has taken from it: of the steel's share of the store's heat a quarter, for half a cycle.
+ * the steel has taken from it, for half a cycle: of the steel's share of the store's heat about a
+ * seventh, as the rock at the strings of the finer plant differs from its mean over a day (rms).
  */
-const UNKNOWN_WALL = 0.25;
+const UNKNOWN_WALL = 0.15;
 const WALL_MEMORY_S = 6 * 3600;
 
 /** One sigma of the state of charge from rock that no string sees: its flow, and the wall [-]. */
