@@ -114,8 +114,9 @@ export function wallModel(tables: BedTables, tubes: readonly TubeModel[]): WallM
   );
   // The tube itself is the rock about the string, as far inwards as outwards.
   const outwards = radius - total * depth;
-  const inwards = Math.max(inside, 2 * (radius - way) - outwards);
   const shareOf = (from: number, to: number): number => (to * to - from * from) / (radius * radius);
+  const evenly = Math.max(inside, 2 * (radius - way) - outwards);
+  const inwards = shareOf(inside, evenly) > LEAST_SHARE ? evenly : inside;
   const own = shareOf(inwards, outwards);
   const thickness = (LAYERS[LAYERS.length - 1] as number) * depth;
   const diameters = bed.particle_diameter_m / thickness;
@@ -124,7 +125,7 @@ export function wallModel(tables: BedTables, tubes: readonly TubeModel[]): WallM
     (2 * Math.PI * edge) / (share * bed.area_m2) / apart;
   const layers: WallLayer[] = [];
   const innermost = shareOf(inside, inwards);
-  if (innermost > LEAST_SHARE) {
+  if (innermost > 0) {
     layers.push({
       share: innermost,
       flowFactor: 1,
