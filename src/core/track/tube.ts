@@ -17,6 +17,7 @@ import {
 } from '../bed/tangent.js';
 import type { EstimatorDefinition, StoreDefinition, StringDefinition } from '../definitions.js';
 import { layoutOf, type TubeLayout } from './layout.js';
+import { loosenPositions } from './places.js';
 import { addProcessNoise } from './processNoise.js';
 
 /** What never changes of one stream tube. */
@@ -53,7 +54,6 @@ export interface TubeScratch {
   readonly probe: BedWork;
   readonly tangent: BedTangent;
   readonly vectors: readonly [Float64Array, Float64Array];
-  readonly probeEnthalpy: Float64Array;
   readonly flowColumn: Float64Array;
   readonly transferColumn: Float64Array;
   readonly leakColumn: Float64Array;
@@ -97,7 +97,6 @@ export function createTubeScratch(layout: TubeLayout): TubeScratch {
     probe: createBedWork(cells),
     tangent: createBedTangent(cells),
     vectors: [new Float64Array(layout.size), new Float64Array(layout.size)],
-    probeEnthalpy: new Float64Array(cells),
     flowColumn: new Float64Array(cells),
     transferColumn: new Float64Array(cells),
     leakColumn: new Float64Array(cells),
@@ -223,36 +222,6 @@ export function predictTube(
   const sign = Math.sign(drive.massFlux_kg_m2s);
   loosenPositions(model, state, work.gasLag_m, sign);
   for (let i = 0; i < layout.cells; i++) state.gasLag_m[i] = sign * (work.gasLag_m[i] as number);
-}
-
-/** Spread of the gas share from one thermocouple to the next (insertion, thermowell): half of 0..1. */
-const SHARE_SPREAD = 0.25;
-
-/**
- * Each junction sees its own share of the gas; the tube's state is their common part. The rest acts
- * like an error of the place, (s_k - s) l, and jumps with the lag l when the flow stops or turns:
- * the variance of a position grows by the square of that jump, up to the prior and the largest lag.
- */
-function loosenPositions(
-  model: TubeModel,
-  state: TubeState,
-  lag_m: Float64Array,
-  sign: number,
-): void {
-  const { layout, string, estimator, tables } = model;
-  const p = state.covariance;
-  for (let k = 0; k < layout.sensors; k++) {
-    const x = (string.thermocouples[k] as { position_m: number }).position_m;
-    const i = Math.min(layout.cells - 1, Math.floor((x / tables.bed.length_m) * layout.cells));
-    const now = sign * (lag_m[i] as number);
-    const jump = SHARE_SPREAD * (now - (state.gasLag_m[i] as number));
-    if (jump === 0) continue;
-    const own = (layout.position + k) * (layout.size + 1);
-    const most =
-      estimator.position_sigma_m ** 2 +
-      (SHARE_SPREAD * 2 * Math.max(Math.abs(now), Math.abs(state.gasLag_m[i] as number))) ** 2;
-    p[own] = Math.max(p[own] as number, Math.min(most, (p[own] as number) + jump * jump));
-  }
 }
 
 /** Puts H' of the perturbed step into the column; `finishColumn` makes the difference quotient. */
