@@ -4,6 +4,7 @@ import { startMachineFactor } from './dispatch/machineFactor.js';
 import { hoursOf } from './dispatch/unitHours.js';
 import type { DispatchAnswer, Estimate, ProfileView } from './estimate.js';
 import type { Scan } from './scan/scan.js';
+import type { ScanCounts } from './scanCounts.js';
 import { startConditions } from './track/conditions.js';
 import { type StoreState, startStore } from './track/storeTracker.js';
 import { startViews } from './track/storeViews.js';
@@ -23,6 +24,8 @@ export interface UnitStep {
   /** Only where asked for. */
   readonly profile: ProfileView | null;
   readonly events: readonly WatchEvent[];
+  /** What of the scan was used and what not. */
+  readonly counts?: ScanCounts;
 }
 
 export interface UnitAsk {

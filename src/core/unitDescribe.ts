@@ -1,5 +1,6 @@
 import { hoursOf, stateOfCharge } from './dispatch/unitHours.js';
 import type { Estimate, ProfileView, Quality, StoreEstimate } from './estimate.js';
+import { countThermocouples, type ScanCounts } from './scanCounts.js';
 import { estimateStore, profileOf } from './track/storeEstimate.js';
 import type { StoreState } from './track/storeTracker.js';
 import { describeViews, type StoreViews, storeSpread } from './track/storeViews.js';
@@ -68,7 +69,15 @@ export function describe(model: UnitModel, state: UnitState, taken: Taken, ask: 
     spread,
     readingsSeen: taken.readings,
   });
-  return { estimate, profile, events };
+  return { estimate, profile, events, counts: countsOf(model, state, taken) };
+}
+
+function countsOf(model: UnitModel, state: UnitState, { scan }: Taken): ScanCounts {
+  const stores = model.stores.map((store, s) => [
+    store.store.id,
+    countThermocouples(store, state.stores[s] as StoreState, scan.values),
+  ]);
+  return { stores: Object.fromEntries(stores) };
 }
 
 /** A state of charge less certain than this is no guide, or not good [-]. */

@@ -1,6 +1,7 @@
 import { FORWARDER_COUNTS } from '../adapters/history/influxForwarder.js';
 import { INTAKE_COUNTS } from '../adapters/mqtt/intake.js';
 import { READING_FATES } from '../core/scan/assemble.js';
+import type { ScanCounts } from '../core/scanCounts.js';
 
 /** Counters of the daemon itself; those of its parts are documented there. */
 const OWN_COUNTS = [
@@ -13,6 +14,12 @@ const OWN_COUNTS = [
   'scans_skipped',
   /** Scans on which the estimator failed; it went on from its last sound state. */
   'scan_failures',
+  /** Thermocouples of all scans by what became of them, and what they are together. */
+  'thermocouples',
+  'thermocouples_used',
+  'thermocouples_rejected',
+  'thermocouples_left_out',
+  'thermocouples_missing',
   'history_failures',
   'events',
   /** Journal entries of a unit or channel that is no longer configured. */
@@ -40,6 +47,17 @@ export class Counters {
 
   add(name: CounterName, by = 1): void {
     this.counts.set(name, (this.counts.get(name) ?? 0) + by);
+  }
+
+  /** Adds what one scan brought and what of it was not used. */
+  addScan({ stores }: ScanCounts): void {
+    for (const { thermocouples, used, rejected, left_out, missing } of Object.values(stores)) {
+      this.add('thermocouples', thermocouples);
+      this.add('thermocouples_used', used);
+      this.add('thermocouples_rejected', rejected);
+      this.add('thermocouples_left_out', left_out);
+      this.add('thermocouples_missing', missing);
+    }
   }
 
   get(name: CounterName): number {

@@ -196,6 +196,7 @@ export class Pipeline {
       counters.add(step.closed.cause === 'complete' ? 'scans_complete' : 'scans_deadline');
       if (step.closed.reported === 0) counters.add('scans_empty');
       counters.add('scans_skipped', runner.skippedScans - skipped);
+      if (step.step.counts) counters.addScan(step.step.counts);
       this.failing.delete(runner.unit.id);
       this.enter(runner, step);
     } catch (thrown) {

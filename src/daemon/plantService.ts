@@ -53,9 +53,9 @@ export class DaemonService implements PlantService {
     const age_s =
       newest_ms === null ? null : Math.max(0, (this.parts.clock.now() - newest_ms) / 1000);
     const isOld = age_s !== null && age_s > unit.watch.data_age_s.limit;
-    const { estimate, profile, dispatch, measured } = view;
+    const { estimate, profile, dispatch, measured, counts } = view;
     const stale = isOld || estimate?.quality === 'stale';
-    return { unit, estimate, profile, dispatch, age_s, stale, ...measured };
+    return { unit, estimate, profile, dispatch, age_s, stale, counts, ...measured };
   }
 
   async hours(

@@ -13,6 +13,7 @@ import {
 import { voltageFinish } from '../core/scan/convert.js';
 import { PlantClock } from '../core/scan/plantClock.js';
 import type { Scan } from '../core/scan/scan.js';
+import type { ScanCounts } from '../core/scanCounts.js';
 import type { UnitSnapshot, UnitState, UnitStep } from '../core/unit.js';
 import type { Core } from './core.js';
 
@@ -34,6 +35,8 @@ export interface RunnerView {
   profile: ProfileView | null;
   dispatch: { time: string; answers: readonly DispatchAnswer[] } | null;
   measured: Measured;
+  /** Of the newest scan; null before the first of this process. */
+  counts: ScanCounts | null;
 }
 
 /**
@@ -48,6 +51,7 @@ export class UnitRunner {
     profile: null,
     dispatch: null,
     measured: { flow_kg_s: null, power_MW_el: null },
+    counts: null,
   };
   private assembler: Assembler;
   private state: UnitState;
@@ -147,7 +151,7 @@ export class UnitRunner {
     const step = this.core.advance(this.unit, this.state, scan, ask);
     const { estimate, profile } = step;
     const measured = measuredIn(this.unit, scan, estimate);
-    Object.assign(this.view, { estimate, profile, measured });
+    Object.assign(this.view, { estimate, profile, measured, counts: step.counts ?? null });
     if (estimate.dispatch) this.view.dispatch = { time: estimate.time, answers: estimate.dispatch };
     return { closed, step, measured };
   }

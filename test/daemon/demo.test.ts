@@ -32,6 +32,11 @@ describe('the demonstration', () => {
     expect(now.age_s).toBeLessThan(90);
     const { rejected: _, ...counters } = service.counters();
     expect(counters).toMatchObject({ malformed: 0, late: 0, future: 0, scans_empty: 0 });
+    const { thermocouples, thermocouples_used, thermocouples_rejected, ...further } = counters;
+    expect(thermocouples_used).toBeGreaterThan(0);
+    expect(thermocouples_used! + thermocouples_rejected!).toBe(
+      thermocouples! - further.thermocouples_left_out! - further.thermocouples_missing!,
+    );
     const answer = await fetch(`${demo.places.url}api/units`);
     expect(answer.status).toBe(200);
     const truths: string[] = [];

@@ -43,6 +43,11 @@ export async function metricsText(
   const charge = gauge('rockhour_state_of_charge_ratio', 'Dispatchable over rated energy', [
     'unit',
   ]);
+  const thermocouples = gauge(
+    'rockhour_thermocouples',
+    'Thermocouples of a store by what became of them in the newest scan',
+    ['unit', 'store', 'state'],
+  );
   const stands = gauge('rockhour_standing', 'Alarms and alerts in the list', [
     'unit',
     'class',
@@ -53,6 +58,13 @@ export async function metricsText(
     if (now === undefined) continue;
     if (now.age_s !== null) age.set({ unit }, now.age_s);
     stale.set({ unit }, now.stale ? 1 : 0);
+    for (const [store, { thermocouples: _all, ...by }] of Object.entries(
+      now.counts?.stores ?? {},
+    )) {
+      for (const [state, count] of Object.entries(by)) {
+        thermocouples.set({ unit, store, state }, count);
+      }
+    }
     if (now.estimate !== null) charge.set({ unit }, now.estimate.state_of_charge);
     for (const event of service.standing(unit)) {
       stands.inc({ unit, class: event.class, state: event.state });

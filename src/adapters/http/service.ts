@@ -1,5 +1,6 @@
 import type { UnitDefinition } from '../../core/definitions.js';
 import type { DispatchAnswer, Estimate, ProfileView } from '../../core/estimate.js';
+import type { ScanCounts } from '../../core/scanCounts.js';
 import type { WatchEvent } from '../../core/watch/event.js';
 import type { UnitWorth } from '../../core/worth/unitWorth.js';
 
@@ -17,6 +18,8 @@ export interface UnitNow {
   /** Age of the newest reading against the wall clock [s], null before the first. */
   readonly age_s: number | null;
   readonly stale: boolean;
+  /** What of the newest scan was used and what not; null or absent before the first. */
+  readonly counts?: ScanCounts | null;
   readonly flow_kg_s: number | null;
   readonly power_MW_el: number | null;
 }

@@ -82,6 +82,10 @@ export function ageOf(now: UnitNow, time: string): number | null {
   return now.age_s + Math.max(0, (Date.parse(latest) - Date.parse(time)) / 1000);
 }
 
+function countsView({ counts }: UnitNow): UnitStateView['counts'] {
+  return counts ? { ...counts, stores: { ...counts.stores } } : null;
+}
+
 export function stateView(now: UnitNow): UnitStateView {
   const { estimate, dispatch } = now;
   return {
@@ -97,6 +101,7 @@ export function stateView(now: UnitNow): UnitStateView {
           },
     age_s: now.age_s,
     stale: now.stale,
+    counts: countsView(now),
     flow_kg_s: now.flow_kg_s,
     power_MW_el: now.power_MW_el,
   };

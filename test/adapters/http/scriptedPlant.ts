@@ -13,6 +13,7 @@ import type {
   ProfileView,
   StoreEstimate,
 } from '../../../src/core/estimate.js';
+import type { ScanCounts } from '../../../src/core/scanCounts.js';
 import type { WatchEvent } from '../../../src/core/watch/event.js';
 import type { UnitWorth } from '../../../src/core/worth/unitWorth.js';
 import { COLD, HOT, unitOf } from './scriptedDefinitions.js';
@@ -88,6 +89,7 @@ export class ScriptedPlant implements PlantService {
   /** Age of the newest reading [s], set by the test. */
   age_s: number | null = 4;
   stale = false;
+  counts: ScanCounts | null = null;
   /** false: no scan has come yet. */
   started = true;
   moment: Moment = { charged: 0.62, mode: 'discharge' };
@@ -170,6 +172,7 @@ export class ScriptedPlant implements PlantService {
         : null,
       age_s: this.started ? this.age_s : null,
       stale: this.stale,
+      counts: this.counts,
       flow_kg_s: this.started ? 12.4 * sense : null,
       power_MW_el: this.started ? [-1.85, 0, 2.2][sense + 1]! : null,
     };

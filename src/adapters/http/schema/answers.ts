@@ -37,6 +37,20 @@ export const unitDefinitionSchema = z.object({
   stores: z.array(storeDefinitionSchema),
 });
 
+const thermocoupleCountsSchema = z
+  .object({
+    thermocouples: z.number(),
+    used: z.number(),
+    rejected: z.number().describe('Out of use by a verdict; those of a group_fault are used on'),
+    left_out: z.number().describe('Read, without a verdict, and not taken in: in doubt for now'),
+    missing: z.number().describe('Without a reading and without a verdict'),
+  })
+  .describe('Each thermocouple once: used + rejected + left_out + missing are all');
+
+const scanCountsSchema = z.object({
+  stores: z.record(z.string(), thermocoupleCountsSchema),
+});
+
 /** The moving part of a unit: what the live stream sends. */
 export const unitStateSchema = z.object({
   unit: z.string(),
@@ -44,6 +58,9 @@ export const unitStateSchema = z.object({
   dispatch: dispatchSchema.nullable(),
   age_s: z.number().nullable().describe('Age of the newest reading [s]; null before the first'),
   stale: z.boolean(),
+  counts: scanCountsSchema
+    .nullable()
+    .describe('What of the newest scan was used; null before the first of this process'),
   flow_kg_s: z.number().nullable().describe('Positive while charging'),
   power_MW_el: z
     .number()

@@ -1,0 +1,76 @@
+import { describe, expect, it } from 'vitest';
+import { advance, startUnit } from '../../src/core/unit.js';
+import { frontedScan } from './track/fronted.js';
+import { unitOf } from './track/plants.js';
+
+const unit = unitOf();
+const NONE = { hours_at_W: [], profile: false };
+const PERIOD_MS = unit.scan_period_s * 1000;
+const GAS = { ambient: 283, hot_top: 730, hot_bottom: 299, cold_bottom: 146, cold_top: 297 };
+
+/** Scans with standing fronts; `change` may spoil what one brings. */
+function run(
+  modes: readonly number[],
+  change: (id: string, n: number, value: number) => number = (_, __, value) => value,
+) {
+  const state = startUnit(unit);
+  return modes.map((mode, n) => {
+    const power = mode > 0 ? 90e3 : mode < 0 ? -50e3 : 300;
+    const others = { ...GAS, mode, flow: 0.9 * mode, power };
+    const scan = frontedScan(unit, n * PERIOD_MS, { hot: 0.4, cold: 0.4 }, others);
+    unit.channels.forEach(({ id }, i) => {
+      scan.values[i] = change(id, n, scan.values[i] as number);
+    });
+    const { estimate, counts } = advance(unit, state, scan, NONE);
+    return { estimate, counts: counts! };
+  });
+}
+
+const standing = (scans: number) => Array.from({ length: scans }, () => 0);
+
+describe('the thermocouples of a scan', () => {
+  it('are each counted once, whatever became of them', () => {
+    const modes = [1, 0, -1].flatMap((mode) => Array.from({ length: 12 }, () => mode));
+    const spoilt = (id: string, n: number, value: number) => {
+      if (id === 'h_3' && n > 5) return Number.NaN;
+      if (id === 'h_6' && n > 8) return 9999;
+      return id.startsWith('c_') && n % 7 === 3 ? Number.NaN : value;
+    };
+    const seen = new Set<string>();
+    for (const { estimate, counts } of run(modes, spoilt)) {
+      for (const store of unit.stores) {
+        const { thermocouples, ...by } = counts.stores[store.id]!;
+        const all = store.strings.flatMap((string) => string.thermocouples);
+        expect(thermocouples).toBe(all.length);
+        expect(by.used + by.rejected + by.left_out + by.missing).toBe(thermocouples);
+        const { used, rejected } = estimate.stores[store.id]!.sensors;
+        expect({ used: by.used, rejected: by.rejected }).toEqual({
+          used,
+          rejected: rejected.length,
+        });
+        for (const [what, count] of Object.entries(by)) {
+          expect(count).toBeGreaterThanOrEqual(0);
+          if (count > 0) seen.add(what);
+        }
+      }
+    }
+    expect([...seen].sort()).toEqual(['left_out', 'missing', 'rejected', 'used']);
+  });
+
+  it('are missing where a whole store is silent, and rejected where one of them is', () => {
+    const silent = run(standing(6), (id, n, value) =>
+      (id.startsWith('c_') && n === 5) || (id === 'h_3' && n >= 3) ? Number.NaN : value,
+    );
+    const { stores } = silent[5]!.counts;
+    expect(stores.cold).toMatchObject({ thermocouples: 8, used: 0, rejected: 0, missing: 8 });
+    expect(stores.hot).toMatchObject({ thermocouples: 8, used: 7, rejected: 1, missing: 0 });
+  });
+
+  it('are left out without a verdict while one reads far off but not for long enough to be named', () => {
+    const [before, after] = run(standing(12), (id, n, value) =>
+      id === 'h_4' && n === 11 ? value + 60 : value,
+    ).slice(-2);
+    expect(before!.counts.stores.hot).toMatchObject({ used: 8, rejected: 0, left_out: 0 });
+    expect(after!.counts.stores.hot).toMatchObject({ used: 7, rejected: 0, left_out: 1 });
+  });
+});
