@@ -1,3 +1,4 @@
+import type { ImplausibleReading } from './track/plausible.js';
 import type { StoreModel, StoreState } from './track/storeTracker.js';
 
 /**
@@ -19,6 +20,8 @@ export interface ThermocoupleCounts {
 /** What a scan brought and what of it was not used, for those who run the plant's instruments. */
 export interface ScanCounts {
   readonly stores: Readonly<Record<string, ThermocoupleCounts>>;
+  /** Readings of other channels that no plant produces; while there is one the quality is no `good`. */
+  readonly implausible: readonly ImplausibleReading[];
 }
 
 /** Counts a store's thermocouples after a scan was taken in; `values` in the order of the channels. */

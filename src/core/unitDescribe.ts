@@ -1,6 +1,7 @@
 import { hoursOf, stateOfCharge } from './dispatch/unitHours.js';
 import type { Estimate, ProfileView, Quality, StoreEstimate } from './estimate.js';
 import { countThermocouples, type ScanCounts } from './scanCounts.js';
+import { implausibleReadings } from './track/plausible.js';
 import { estimateStore, profileOf } from './track/storeEstimate.js';
 import type { StoreState } from './track/storeTracker.js';
 import { describeViews, type StoreViews, storeSpread } from './track/storeViews.js';
@@ -72,12 +73,15 @@ export function describe(model: UnitModel, state: UnitState, taken: Taken, ask: 
   return { estimate, profile, events, counts: countsOf(model, state, taken) };
 }
 
-function countsOf(model: UnitModel, state: UnitState, { scan }: Taken): ScanCounts {
+function countsOf(model: UnitModel, state: UnitState, taken: Taken): ScanCounts {
   const stores = model.stores.map((store, s) => [
     store.store.id,
-    countThermocouples(store, state.stores[s] as StoreState, scan.values),
+    countThermocouples(store, state.stores[s] as StoreState, taken.scan.values),
   ]);
-  return { stores: Object.fromEntries(stores) };
+  return {
+    stores: Object.fromEntries(stores),
+    implausible: implausibleReadings(model.unit, taken.implausible),
+  };
 }
 
 /** A state of charge less certain than this is no guide, or not good [-]. */
@@ -94,7 +98,7 @@ function qualityOf(model: UnitModel, state: UnitState, taken: Taken): Quality {
   const sigma = Math.max(...taken.stores.map(({ energy }) => energy.soc_sigma));
   if (sigma > BLIND_SIGMA) return 'blind';
   if (sigma > GOOD_SIGMA) return 'degraded';
-  if (taken.implausible > 0 || taken.conditions.flowStandIn) return 'degraded';
+  if (taken.implausible.length > 0 || taken.conditions.flowStandIn) return 'degraded';
   if (!taken.conditions.flowKnown || used < 0.6 * model.thermocouples.length || !settled) {
     return 'degraded';
   }

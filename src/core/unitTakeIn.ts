@@ -17,9 +17,9 @@ import type { UnitState } from './unitState.js';
 
 /** What taking a scan in has shown, for the estimate that describes it. */
 export interface Taken {
-  /** The scan as it was used: readings that no plant produces are missing ones; how many those were. */
+  /** The scan as it was used: readings that no plant produces are missing ones; the channels of those. */
   readonly scan: Scan;
-  readonly implausible: number;
+  readonly implausible: readonly number[];
   readonly conditions: Conditions;
   readonly stores: readonly TakenStore[];
   /** Thermocouple readings, and readings of any channel, in this scan. */

@@ -2,6 +2,7 @@ import { FORWARDER_COUNTS } from '../adapters/history/influxForwarder.js';
 import { INTAKE_COUNTS } from '../adapters/mqtt/intake.js';
 import { READING_FATES } from '../core/scan/assemble.js';
 import type { ScanCounts } from '../core/scanCounts.js';
+import { IMPLAUSIBLE_KINDS } from '../core/track/plausible.js';
 
 /** Counters of the daemon itself; those of its parts are documented there. */
 const OWN_COUNTS = [
@@ -29,8 +30,12 @@ const OWN_COUNTS = [
   'estimates_not_forwarded',
 ] as const;
 
+/** Readings that no plant produces, by the kind of their channel. */
+const IMPLAUSIBLE_COUNTS = IMPLAUSIBLE_KINDS.map((kind) => `implausible_${kind}` as const);
+
 export type CounterName =
   | (typeof OWN_COUNTS)[number]
+  | (typeof IMPLAUSIBLE_COUNTS)[number]
   | (typeof INTAKE_COUNTS)[number]
   | (typeof READING_FATES)[number]
   | (typeof FORWARDER_COUNTS)[number];
@@ -40,7 +45,13 @@ export class Counters {
   private readonly counts = new Map<string, number>();
 
   constructor() {
-    for (const list of [INTAKE_COUNTS, READING_FATES, OWN_COUNTS, FORWARDER_COUNTS]) {
+    for (const list of [
+      INTAKE_COUNTS,
+      READING_FATES,
+      OWN_COUNTS,
+      IMPLAUSIBLE_COUNTS,
+      FORWARDER_COUNTS,
+    ]) {
       for (const name of list) this.counts.set(name, 0);
     }
   }
@@ -50,7 +61,7 @@ export class Counters {
   }
 
   /** Adds what one scan brought and what of it was not used. */
-  addScan({ stores }: ScanCounts): void {
+  addScan({ stores, implausible }: ScanCounts): void {
     for (const { thermocouples, used, rejected, left_out, missing } of Object.values(stores)) {
       this.add('thermocouples', thermocouples);
       this.add('thermocouples_used', used);
@@ -58,6 +69,7 @@ export class Counters {
       this.add('thermocouples_left_out', left_out);
       this.add('thermocouples_missing', missing);
     }
+    for (const { kind } of implausible) this.add(`implausible_${kind}`);
   }
 
   get(name: CounterName): number {

@@ -74,3 +74,25 @@ describe('the thermocouples of a scan', () => {
     expect(after!.counts.stores.hot).toMatchObject({ used: 7, rejected: 0, left_out: 1 });
   });
 });
+
+describe('readings that no plant produces', () => {
+  it('are told by channel and kind in the scan that brings them, and not after it', () => {
+    const wild: Record<string, number> = { hot_top: 9999, flow: -500, power: 1e12, ambient: -40 };
+    const scans = run(standing(14), (id, n, value) => (n === 12 ? (wild[id] ?? value) : value));
+    const told = scans[12]!.counts.implausible.map(({ channel, kind }) => `${channel} ${kind}`);
+    expect(told.sort()).toEqual([
+      'ambient ambient_temperature',
+      'flow flow',
+      'hot_top gas_temperature',
+      'power power',
+    ]);
+    expect(scans[12]!.estimate.quality).toBe('degraded');
+    for (const n of [11, 13]) expect(scans[n]!.counts.implausible).toEqual([]);
+  });
+
+  it('are not those of thermocouples in the bed, which are judged one by one', () => {
+    const scans = run(standing(4), (id, n, value) => (id === 'h_2' && n === 3 ? 9999 : value));
+    expect(scans[3]!.counts.implausible).toEqual([]);
+    expect(scans[3]!.counts.stores.hot!.rejected).toBe(1);
+  });
+});

@@ -48,6 +48,11 @@ export async function metricsText(
     'Thermocouples of a store by what became of them in the newest scan',
     ['unit', 'store', 'state'],
   );
+  const implausible = gauge(
+    'rockhour_implausible_reading',
+    '1 for a channel whose newest reading no plant produces; it is not used',
+    ['unit', 'channel', 'kind'],
+  );
   const stands = gauge('rockhour_standing', 'Alarms and alerts in the list', [
     'unit',
     'class',
@@ -64,6 +69,9 @@ export async function metricsText(
       for (const [state, count] of Object.entries(by)) {
         thermocouples.set({ unit, store, state }, count);
       }
+    }
+    for (const { channel, kind } of now.counts?.implausible ?? []) {
+      implausible.set({ unit, channel, kind }, 1);
     }
     if (now.estimate !== null) charge.set({ unit }, now.estimate.state_of_charge);
     for (const event of service.standing(unit)) {

@@ -83,7 +83,9 @@ export function ageOf(now: UnitNow, time: string): number | null {
 }
 
 function countsView({ counts }: UnitNow): UnitStateView['counts'] {
-  return counts ? { ...counts, stores: { ...counts.stores } } : null;
+  return counts
+    ? { ...counts, stores: { ...counts.stores }, implausible: [...counts.implausible] }
+    : null;
 }
 
 export function stateView(now: UnitNow): UnitStateView {

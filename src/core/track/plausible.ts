@@ -18,6 +18,21 @@ const AMBIENT_K: Range = [180, 340];
 const FLOW_MOST = 3;
 const POWER_MOST = 5;
 
+/** Kinds of channels that have such a range: why a reading of theirs is none. */
+export const IMPLAUSIBLE_KINDS = [
+  'gas_temperature',
+  'flow',
+  'power',
+  'ambient_temperature',
+] as const;
+export type ImplausibleKind = (typeof IMPLAUSIBLE_KINDS)[number];
+
+/** A reading that no plant produces: missing to the estimate. */
+export interface ImplausibleReading {
+  readonly channel: string;
+  readonly kind: ImplausibleKind;
+}
+
 /** One range per channel of the unit, in SI; null where every finite value may be. */
 export function plausibleRanges(unit: UnitDefinition): readonly (Range | null)[] {
   const { charge, discharge } = unit.limits;
@@ -36,20 +51,32 @@ export function plausibleRanges(unit: UnitDefinition): readonly (Range | null)[]
   });
 }
 
-/** A scan in which readings beyond their range are missing ones, and how many those were. */
+/** A scan in which readings beyond their range are missing ones, and the channels of those. */
 export function withoutImplausible(
   ranges: readonly (Range | null)[],
   scan: Scan,
-): { readonly scan: Scan; readonly dropped: number } {
+): { readonly scan: Scan; readonly dropped: readonly number[] } {
   let values = scan.values;
-  let dropped = 0;
+  const dropped: number[] = [];
   ranges.forEach((range, i) => {
     const value = scan.values[i] as number;
     if (range === null || Number.isNaN(value)) return;
     if (value >= range[0] && value <= range[1]) return;
-    if (dropped === 0) values = Float64Array.from(values);
+    if (dropped.length === 0) values = Float64Array.from(values);
     values[i] = Number.NaN;
-    dropped++;
+    dropped.push(i);
   });
-  return dropped === 0 ? { scan, dropped } : { scan: { ...scan, values }, dropped };
+  return dropped.length === 0 ? { scan, dropped } : { scan: { ...scan, values }, dropped };
+}
+
+/** Channels by their index as readings that no plant produces, each with its kind. */
+export function implausibleReadings(
+  unit: UnitDefinition,
+  dropped: readonly number[],
+): ImplausibleReading[] {
+  return dropped.flatMap((i) => {
+    const { id, role } = unit.channels[i] as ChannelDefinition;
+    const kind = IMPLAUSIBLE_KINDS.find((one) => one === role.kind);
+    return kind === undefined ? [] : [{ channel: id, kind }];
+  });
 }

@@ -222,19 +222,22 @@ describe('the good answers, each held against the schema that documents it', () 
     }
   });
 
-  it('tells of a unit and in the metrics what became of the thermocouples in the newest scan', async () => {
+  it('tells of a unit and in the metrics what became of the readings in the newest scan', async () => {
     const { get, plant } = await app();
     const unit = async () => unitNowSchema.strict().parse((await get('/api/units/north')).json());
     expect((await unit()).counts).toBeNull();
     const hot = { thermocouples: 42, used: 38, rejected: 2, left_out: 1, missing: 1 };
-    plant.counts = { stores: { hot } };
-    expect((await unit()).counts).toEqual({ stores: { hot } });
+    const implausible = [{ channel: 'hot_top', kind: 'gas_temperature' }] as const;
+    plant.counts = { stores: { hot }, implausible };
+    expect((await unit()).counts).toEqual(plant.counts);
     const lines = (await get('/metrics')).body.split('\n');
     const { thermocouples: _all, ...by } = hot;
     for (const [state, count] of Object.entries(by)) {
       const labels = `unit="north",store="hot",state="${state}"`;
       expect(lines).toContain(`rockhour_thermocouples{${labels}} ${count}`);
     }
+    const labels = 'unit="north",channel="hot_top",kind="gas_temperature"';
+    expect(lines).toContain(`rockhour_implausible_reading{${labels}} 1`);
   });
 
   it('writes a number that is not finite as null, and counts it', async () => {

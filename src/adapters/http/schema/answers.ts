@@ -1,4 +1,5 @@
 import { z } from 'zod';
+import { IMPLAUSIBLE_KINDS } from '../../../core/track/plausible.js';
 import { EVENT_KINDS } from '../../../core/watch/event.js';
 import { FAULT_CODES } from '../faults.js';
 import { dispatchSchema, estimateSchema, profileSchema, timeSchema } from './estimate.js';
@@ -49,6 +50,11 @@ const thermocoupleCountsSchema = z
 
 const scanCountsSchema = z.object({
   stores: z.record(z.string(), thermocoupleCountsSchema),
+  implausible: z
+    .array(z.object({ channel: z.string(), kind: z.enum(IMPLAUSIBLE_KINDS) }))
+    .describe(
+      'Readings that no plant produces: not used, and the quality is no better than degraded',
+    ),
 });
 
 /** The moving part of a unit: what the live stream sends. */
