@@ -102,12 +102,15 @@ function conductivitySlopes(
   const p = work.exchange[i] as number;
   const scale = flux * cf * dx;
   const da = a < 1 ? (1 - a) * n : 0;
-  const along = (dlnN: number, dlnG: number): number => {
-    const by = da * dlnN;
-    const dp = p * (by / a + dlnG);
-    return scale * (-by / (a * a) + dlnN / n + (2 * p * dp - (p * p * by) / a) / (12 * a));
-  };
   const disperse = tables.mixing * flux * tables.bed.particle_diameter_m * cf;
-  work.slopeFlow[i] = disperse - numericalConductivity(scale, n, a, p) - along(film - 1, 1);
-  work.slopeTransfer[i] = -along(1, 0);
+  work.slopeFlow[i] =
+    disperse - numericalConductivity(scale, n, a, p) - scale * ownSlope(n, a, p, da, film - 1, 1);
+  work.slopeTransfer[i] = -scale * ownSlope(n, a, p, da, 1, 0);
+}
+
+/** How the bracket of `numericalConductivity` moves as ln n and ln G do by `lnN` and `lnG`. */
+function ownSlope(n: number, a: number, p: number, da: number, lnN: number, lnG: number): number {
+  const by = da * lnN;
+  const dp = p * (by / a + lnG);
+  return -by / (a * a) + lnN / n + (2 * p * dp - (p * p * by) / a) / (12 * a);
 }

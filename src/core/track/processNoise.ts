@@ -114,6 +114,7 @@ function travelOf(model: TubeModel, state: TubeState, drive: TubeDrive): number 
   );
 }
 
+/** Adds scale times v v', both halves alike. */
 function addRankOne(
   p: Float64Array,
   size: number,
@@ -125,8 +126,9 @@ function addRankOne(
   for (let i = 0; i < cells; i++) {
     const a = root * (vector[i] as number);
     if (a === 0) continue;
+    const row = i * size;
     for (let j = 0; j < cells; j++) {
-      p[i * size + j] = (p[i * size + j] as number) + a * (root * (vector[j] as number));
+      p[row + j] = (p[row + j] as number) + a * (root * (vector[j] as number));
     }
   }
 }

@@ -7,14 +7,9 @@ import {
   wallLossPerVolume,
 } from '../bed/kernel.js';
 import { parameterColumns } from '../bed/parameterTangent.js';
+import { createPropagation, propagate } from '../bed/propagate.js';
 import { type BedTables, enthalpyAt, temperatureAt } from '../bed/tables.js';
-import {
-  applyTangent,
-  type BedTangent,
-  createBedTangent,
-  linearise,
-  transpose,
-} from '../bed/tangent.js';
+import { type BedTangent, createBedTangent, linearise } from '../bed/tangent.js';
 import type { EstimatorDefinition, StoreDefinition, StringDefinition } from '../definitions.js';
 import { layoutOf, type TubeLayout } from './layout.js';
 import { loosenPositions } from './places.js';
@@ -53,7 +48,8 @@ export interface TubeScratch {
   readonly work: BedWork;
   readonly probe: BedWork;
   readonly tangent: BedTangent;
-  readonly vectors: readonly [Float64Array, Float64Array];
+  /** Of `propagate`. */
+  readonly propagation: Float64Array;
   readonly flowColumn: Float64Array;
   readonly transferColumn: Float64Array;
   readonly leakColumn: Float64Array;
@@ -96,7 +92,7 @@ export function createTubeScratch(layout: TubeLayout): TubeScratch {
     work: createBedWork(cells),
     probe: createBedWork(cells),
     tangent: createBedTangent(cells),
-    vectors: [new Float64Array(layout.size), new Float64Array(layout.size)],
+    propagation: createPropagation(cells),
     flowColumn: new Float64Array(cells),
     transferColumn: new Float64Array(cells),
     leakColumn: new Float64Array(cells),
@@ -213,9 +209,7 @@ export function predictTube(
           ? [{ row: layout.leak, column: scratch.leakColumn }]
           : [],
     };
-    applyTangent(tangent, state.covariance, layout.size, rows, false, scratch.vectors);
-    transpose(state.covariance, layout.size);
-    applyTangent(tangent, state.covariance, layout.size, rows, true, scratch.vectors);
+    propagate(tangent, state.covariance, layout.size, rows, scratch.propagation);
     addProcessNoise(model, state, { ...drive, dt_s: step.dt_s, scans: 1 / substeps }, scratch);
   }
   state.outlet_K = standing ? Number.NaN : gasOut / substeps;

@@ -21,7 +21,8 @@ import { mulberry } from '../../support/random.js';
 import { type Dense, denseOf, inverse, plus, product, transposed } from './dense.js';
 import { hotStore, modelOf, stringOf } from './plants.js';
 
-const CELLS = 20;
+// Odd with the further states: the update goes by tiles of two by four.
+const CELLS = 21;
 const SENSORS = 6;
 
 const MODEL = modelOf(
