@@ -22,6 +22,9 @@ export interface ScanCounts {
   readonly stores: Readonly<Record<string, ThermocoupleCounts>>;
   /** Readings of other channels that no plant produces; while there is one the quality is no `good`. */
   readonly implausible: readonly ImplausibleReading[];
+  /** Mode as told and flow as metered contradict each other, now; scans in which they did so far. */
+  readonly mode_disagrees: boolean;
+  readonly mode_disagreements: number;
 }
 
 /** Counts a store's thermocouples after a scan was taken in; `values` in the order of the channels. */

@@ -81,6 +81,8 @@ function countsOf(model: UnitModel, state: UnitState, taken: Taken): ScanCounts 
   return {
     stores: Object.fromEntries(stores),
     implausible: implausibleReadings(model.unit, taken.implausible),
+    mode_disagrees: taken.disagrees,
+    mode_disagreements: state.conditions.disagreements,
   };
 }
 

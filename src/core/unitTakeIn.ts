@@ -26,6 +26,8 @@ export interface Taken {
   readonly thermocouples: number;
   readonly readings: number;
   readonly modeChanged: boolean;
+  /** Mode and flow contradict each other in this scan. */
+  readonly disagrees: boolean;
 }
 
 /** What one scan did to a store: its step, its heat, its fronts, and the steps of its front views. */
@@ -47,7 +49,9 @@ export function forget(model: UnitModel, state: UnitState): void {
     state.unknownTravel_m[s] = 0;
     state.balances[s] = startHeatBalance();
   });
-  Object.assign(state.conditions, startConditions());
+  // Only counted: what the bed was taken for does not hang on it.
+  const { disagreements } = state.conditions;
+  Object.assign(state.conditions, startConditions(), { disagreements });
   state.charge = null;
 }
 
@@ -57,6 +61,7 @@ export function takeIn(model: UnitModel, state: UnitState, raw: Scan): Taken {
   const { scan, dropped: implausible } = withoutImplausible(model.ranges, raw);
   const dt_s = state.time_ms === null ? 0 : (scan.time_ms - state.time_ms) / 1000;
   const outlets = storeOutlets(model, state, scan);
+  const contradicted = state.conditions.disagreements;
   const conditions = readConditions(
     unit,
     model.map,
@@ -66,6 +71,7 @@ export function takeIn(model: UnitModel, state: UnitState, raw: Scan): Taken {
     dt_s,
     outlets,
   );
+  const disagrees = state.conditions.disagreements > contradicted;
   const thermocouples = model.thermocouples.filter((i) => Number.isFinite(scan.values[i])).length;
   if (thermocouples > 0) {
     if (state.seen_ms !== null && scan.time_ms - state.seen_ms > FORGET_MS) forget(model, state);
@@ -129,5 +135,5 @@ export function takeIn(model: UnitModel, state: UnitState, raw: Scan): Taken {
   });
   state.time_ms = scan.time_ms;
   const readings = scan.values.reduce((n, v) => n + (Number.isFinite(v) ? 1 : 0), 0);
-  return { scan, implausible, conditions, stores, thermocouples, readings, modeChanged };
+  return { scan, implausible, conditions, stores, thermocouples, readings, modeChanged, disagrees };
 }

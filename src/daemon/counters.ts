@@ -21,6 +21,8 @@ const OWN_COUNTS = [
   'thermocouples_rejected',
   'thermocouples_left_out',
   'thermocouples_missing',
+  /** Scans in which mode as told and flow as metered contradict each other. */
+  'mode_disagreements',
   'history_failures',
   'events',
   /** Journal entries of a unit or channel that is no longer configured. */
@@ -61,7 +63,7 @@ export class Counters {
   }
 
   /** Adds what one scan brought and what of it was not used. */
-  addScan({ stores, implausible }: ScanCounts): void {
+  addScan({ stores, implausible, mode_disagrees }: ScanCounts): void {
     for (const { thermocouples, used, rejected, left_out, missing } of Object.values(stores)) {
       this.add('thermocouples', thermocouples);
       this.add('thermocouples_used', used);
@@ -69,6 +71,7 @@ export class Counters {
       this.add('thermocouples_left_out', left_out);
       this.add('thermocouples_missing', missing);
     }
+    if (mode_disagrees) this.add('mode_disagreements');
     for (const { kind } of implausible) this.add(`implausible_${kind}`);
   }
 

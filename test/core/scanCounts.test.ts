@@ -96,3 +96,23 @@ describe('readings that no plant produces', () => {
     expect(scans[3]!.counts.stores.hot!.rejected).toBe(1);
   });
 });
+
+describe('a mode that contradicts the flow', () => {
+  it('is told in the scans that show it, and stays counted, also over a day without readings', () => {
+    // A discharge is told while the meter says that gas goes the way of a charge.
+    const modes = [1, 1, -1, -1, 1];
+    const scans = run(modes, (id, _n, value) =>
+      id === 'flow' ? 0.9 : id === 'power' ? Number.NaN : value,
+    );
+    expect(scans.map(({ counts }) => counts.mode_disagrees)).toEqual(modes.map((mode) => mode < 0));
+    expect(scans.map(({ counts }) => counts.mode_disagreements)).toEqual([0, 0, 1, 2, 2]);
+
+    const state = startUnit(unit);
+    const fronts = { hot: 0.4, cold: 0.4 };
+    const at = (time_ms: number, mode: number) =>
+      advance(unit, state, frontedScan(unit, time_ms, fronts, { ...GAS, mode, flow: 0.9 }), NONE);
+    at(0, -1);
+    const { counts } = at(3 * 86_400_000, 1);
+    expect(counts).toMatchObject({ mode_disagrees: false, mode_disagreements: 1 });
+  });
+});

@@ -10,8 +10,10 @@ describe('the counters of scans', () => {
     const stores = { hot: thermocouples, cold: { ...thermocouples, used: 4, missing: 1 } };
     const gas = (channel: string) => ({ channel, kind: 'gas_temperature' as const });
     const flow = { channel: 'flow', kind: 'flow' } as const;
-    counters.addScan({ stores, implausible: [gas('top'), gas('bottom'), flow] });
-    counters.addScan({ stores: { hot: thermocouples }, implausible: [flow] });
+    const mode = { mode_disagrees: false, mode_disagreements: 4 };
+    counters.addScan({ stores, implausible: [gas('top'), gas('bottom'), flow], ...mode });
+    const against = { mode_disagrees: true, mode_disagreements: 5 };
+    counters.addScan({ stores: { hot: thermocouples }, implausible: [flow], ...against });
     expect(counters.all()).toMatchObject({
       thermocouples: 24,
       thermocouples_used: 14,
@@ -22,6 +24,7 @@ describe('the counters of scans', () => {
       implausible_flow: 2,
       implausible_power: 0,
       implausible_ambient_temperature: 0,
+      mode_disagreements: 1,
     });
   });
 });

@@ -53,6 +53,11 @@ export async function metricsText(
     '1 for a channel whose newest reading no plant produces; it is not used',
     ['unit', 'channel', 'kind'],
   );
+  const disagrees = gauge(
+    'rockhour_mode_disagrees',
+    '1 where mode as told and flow as metered contradict each other in the newest scan',
+    ['unit'],
+  );
   const stands = gauge('rockhour_standing', 'Alarms and alerts in the list', [
     'unit',
     'class',
@@ -70,6 +75,7 @@ export async function metricsText(
         thermocouples.set({ unit, store, state }, count);
       }
     }
+    if (now.counts) disagrees.set({ unit }, now.counts.mode_disagrees ? 1 : 0);
     for (const { channel, kind } of now.counts?.implausible ?? []) {
       implausible.set({ unit, channel, kind }, 1);
     }

@@ -228,7 +228,7 @@ describe('the good answers, each held against the schema that documents it', () 
     expect((await unit()).counts).toBeNull();
     const hot = { thermocouples: 42, used: 38, rejected: 2, left_out: 1, missing: 1 };
     const implausible = [{ channel: 'hot_top', kind: 'gas_temperature' }] as const;
-    plant.counts = { stores: { hot }, implausible };
+    plant.counts = { stores: { hot }, implausible, mode_disagrees: true, mode_disagreements: 3 };
     expect((await unit()).counts).toEqual(plant.counts);
     const lines = (await get('/metrics')).body.split('\n');
     const { thermocouples: _all, ...by } = hot;
@@ -238,6 +238,7 @@ describe('the good answers, each held against the schema that documents it', () 
     }
     const labels = 'unit="north",channel="hot_top",kind="gas_temperature"';
     expect(lines).toContain(`rockhour_implausible_reading{${labels}} 1`);
+    expect(lines).toContain('rockhour_mode_disagrees{unit="north"} 1');
   });
 
   it('writes a number that is not finite as null, and counts it', async () => {

@@ -55,6 +55,8 @@ const scanCountsSchema = z.object({
     .describe(
       'Readings that no plant produces: not used, and the quality is no better than degraded',
     ),
+  mode_disagrees: z.boolean().describe('Mode as told and flow as metered contradict each other'),
+  mode_disagreements: z.number().describe('Scans in which they did, kept over a restart'),
 });
 
 /** The moving part of a unit: what the live stream sends. */
