@@ -189,9 +189,60 @@ export interface DirectionLimits {
   readonly flow_max_kg_s: number;
 }
 
+/** What a start-up takes: time from standing until the first power, and electricity meanwhile. */
+export interface StartUpDefinition {
+  readonly time_s: number;
+  readonly energy_J: number;
+}
+
+/** How fast the machine follows a command; see core/plan/command. */
+export interface OperationDefinition {
+  /** Greatest change of net power [W/s]; null = at once. */
+  readonly ramp_W_s: Readonly<Record<Direction, number | null>>;
+  readonly start: {
+    readonly warm: StartUpDefinition;
+    readonly cold: StartUpDefinition;
+    /** A machine that stood longer than this starts cold [s]. */
+    readonly cold_after_s: number;
+  };
+  /** From the end of one direction to the start-up of the other [s]. */
+  readonly change_over_s: number;
+}
+
+/** What the grid connection lets through at some time of day. */
+export interface ConnectionWindow {
+  /** Minutes after local midnight; a window may run over midnight. */
+  readonly from_min: number;
+  readonly to_min: number;
+  readonly export_max_W: number;
+  readonly import_max_W: number;
+}
+
+export interface ConnectionDefinition {
+  /** IANA name of the zone in which the windows are meant, and blocks are written. */
+  readonly time_zone: string;
+  readonly export_max_W: number;
+  readonly import_max_W: number;
+  readonly windows: readonly ConnectionWindow[];
+}
+
+/** Time in which the unit can give or take less, or nothing. */
+export interface OutageDefinition {
+  readonly from_ms: number;
+  readonly to_ms: number;
+  readonly discharge_max_W: number;
+  readonly charge_max_W: number;
+  readonly reason: string;
+}
+
 export interface LimitsDefinition {
   readonly charge: DirectionLimits;
   readonly discharge: DirectionLimits;
+  /** Absent: at once, without start-up. */
+  readonly operation?: OperationDefinition;
+  /** Absent: no limit of the connection. */
+  readonly connection?: ConnectionDefinition;
+  readonly outages?: readonly OutageDefinition[];
   /** A discharge ends when the hot outlet falls below / the cold outlet rises above these [K]. */
   readonly hot_outlet_min_K: number | null;
   readonly cold_outlet_max_K: number | null;

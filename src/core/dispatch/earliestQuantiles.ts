@@ -34,7 +34,7 @@ export function earliestQuantiles(
 }
 
 /** Lower factor of a covariance that may be singular: a vanishing pivot gives a zero column. */
-function cholesky(a: readonly Float64Array[]): Float64Array[] {
+export function cholesky(a: readonly Float64Array[]): Float64Array[] {
   const n = a.length;
   const out = a.map(() => new Float64Array(n));
   for (let j = 0; j < n; j++) {

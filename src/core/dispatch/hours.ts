@@ -32,7 +32,7 @@ const PROBE_LOG = 0.01;
  * what all heat balances of a store leave out alike (end steel, a fifth of the losses, the shape of
  * c(T)), 0.5 %.
  */
-const MODEL_SIGMA = 0.0055;
+export const MODEL_SIGMA = 0.0055;
 const J_PER_MWH = 3.6e9;
 
 /**

@@ -1,3 +1,4 @@
+import type { StoreEnd } from '../definitions.js';
 import type { RolloutStore } from './rollout.js';
 
 /** Well-mixed node of gas and steel: T' = out + (T - out) exp(-dt/tau), tau = (C + rho V cp)/(m cp). */
@@ -7,8 +8,9 @@ export function throughPlenum(
   out_K: number,
   flow_kg_s: number,
   dt_s: number,
+  end: StoreEnd = 'charge_inlet',
 ): number {
-  const tau = plenumTime(store, plenum_K, out_K, flow_kg_s);
+  const tau = plenumTime(store, plenum_K, out_K, flow_kg_s, end);
   return tau <= 0 ? out_K : out_K + (plenum_K - out_K) * Math.exp(-dt_s / tau);
 }
 
@@ -18,12 +20,12 @@ function plenumTime(
   plenum_K: number,
   out_K: number,
   flow_kg_s: number,
+  end: StoreEnd,
 ): number {
   const { bed } = store.store;
   const cp = bed.fluid.heatCapacity(out_K);
-  const gas =
-    bed.end_volume_m3.charge_inlet * bed.fluid.density_kg_m3(plenum_K, bed.pressure_Pa) * cp;
-  return (bed.end_capacity_J_K.charge_inlet + gas) / (flow_kg_s * cp);
+  const gas = bed.end_volume_m3[end] * bed.fluid.density_kg_m3(plenum_K, bed.pressure_Pa) * cp;
+  return (bed.end_capacity_J_K[end] + gas) / (flow_kg_s * cp);
 }
 
 /**
@@ -37,8 +39,9 @@ export function excessLag(
   out_K: number,
   flow_kg_s: number,
   dt_s: number,
+  end: StoreEnd = 'charge_inlet',
 ): number {
-  const tau = plenumTime(store, plenum_K, out_K, flow_kg_s);
+  const tau = plenumTime(store, plenum_K, out_K, flow_kg_s, end);
   return dt_s / 2 / Math.tanh(dt_s / (2 * tau)) - tau;
 }
 
@@ -48,11 +51,12 @@ export function isSwept(
   plenum_K: readonly number[],
   sweptMass: readonly number[],
   t: number,
+  end: StoreEnd = 'charge_inlet',
 ): boolean {
   return stores.every((store, i) => {
     const { bed } = store.store;
-    const capacity = bed.end_capacity_J_K.charge_inlet;
-    const volume = bed.end_volume_m3.charge_inlet;
+    const capacity = bed.end_capacity_J_K[end];
+    const volume = bed.end_volume_m3[end];
     if (capacity === 0 && volume === 0) return t > 0;
     const temperature = plenum_K[i] as number;
     const gas = volume * bed.fluid.density_kg_m3(temperature, bed.pressure_Pa);

@@ -96,7 +96,7 @@ export function createRoller(input: HoursInput, power_W: number): Roller {
 }
 
 /** Streams of the tubes alone: the one beside the layers at the wall takes their share. */
-function tubesAlone(model: StoreModel, state: StoreState): Stream[] {
+export function tubesAlone(model: StoreModel, state: StoreState): Stream[] {
   return streamsOf(model, state)
     .slice(0, model.tubes.length)
     .map((stream, k) =>
@@ -104,8 +104,12 @@ function tubesAlone(model: StoreModel, state: StoreState): Stream[] {
     );
 }
 
-/** @param logFlow ln of the store's mean flow factor where more is known than the streams tell */
-function rolloutStore(
+/**
+ * A store as a rollout needs it.
+ *
+ * @param logFlow ln of the store's mean flow factor where more is known than the streams tell
+ */
+export function rolloutStore(
   model: StoreModel,
   streams: readonly Stream[],
   plenum_K: number,
@@ -125,7 +129,12 @@ function rolloutStore(
   };
 }
 
-function perturb(model: StoreModel, store: RolloutStore, change: Perturbation): RolloutStore {
+/** The store with one thing perturbed; `store` and `work` of the change are the caller's. */
+export function perturb(
+  model: StoreModel,
+  store: RolloutStore,
+  change: Perturbation,
+): RolloutStore {
   const weights = change.bump === undefined ? null : bumpWeights(model, change.bump);
   return {
     ...store,

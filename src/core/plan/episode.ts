@@ -1,0 +1,327 @@
+import type { BedWork } from '../bed/kernel.js';
+import type { Direction } from '../definitions.js';
+import { excessLag, isSwept } from '../dispatch/plenum.js';
+import { RULES, SWEEP_MOST_S } from '../dispatch/rollout.js';
+import type { EndCause } from '../estimate.js';
+import {
+  type AheadModel,
+  type BedsAhead,
+  copyAhead,
+  endOfBed,
+  flowFor,
+  OUTLET,
+  outletsOf,
+  powerOf,
+  stepAhead,
+  worstDrop,
+} from './bedsAhead.js';
+import type { Piece } from './command.js';
+
+/** A stretch of net power as delivered, linear in time [W], + = given. */
+export interface Delivered {
+  readonly from_s: number;
+  readonly to_s: number;
+  readonly power0_W: number;
+  readonly power1_W: number;
+}
+
+/** One run in one direction, over all the pieces that follow each other. */
+export interface Episode {
+  readonly direction: Direction;
+  readonly from_s: number;
+  /** Commanded end. */
+  readonly to_s: number;
+  /**
+   * When each rule of `RULES` breaks; beyond `to_s` as if the last power went on. Infinity where that
+   * is not within the time looked ahead.
+   */
+  readonly times_s: Float64Array;
+  readonly first_s: number;
+  readonly ends_by: EndCause;
+  /** When the unit stopped before its commanded end; null = it did not. */
+  readonly stopped_s: number | null;
+  /** From when on it gave or took less than commanded, at its greatest flow; null = never. */
+  readonly derated_s: number | null;
+}
+
+/** How a march is made. */
+export interface MarchOptions {
+  readonly step_s: number;
+  /** How far past its commanded end a run is followed for the rules' times [s]. */
+  readonly beyond_s: number;
+  readonly works: readonly (readonly BedWork[])[];
+  /** Called after each step: time, and the beds then. */
+  readonly each?: (t_s: number, ahead: BedsAhead) => void;
+}
+
+/** Until the lids are swept a step is taken in so many parts. */
+const SWEEP_PARTS = 5;
+/** After the first rule is broken the others are followed for this share of the run longer. */
+const FOLLOW = 0.15;
+/** A derated unit stops below this share of the commanded power where no least power is set. */
+const LEAST_SHARE = 0.02;
+
+/** What a run remembers from step to step. */
+interface Run {
+  readonly direction: Direction;
+  readonly from_s: number;
+  t: number;
+  swept: boolean;
+  sweptMass: number[];
+  lags: number[];
+  workBefore: number;
+  flow: number;
+  first: number;
+  derated: number | null;
+  readonly times: Float64Array;
+  readonly before: Float64Array;
+  readonly beforeAt: Float64Array;
+}
+
+/**
+ * Marches the beds through one run, in place, and says when each stop rule breaks.
+ *
+ * Each step takes the metered flow that its mean commanded power needs at the present mixed outlets.
+ * Where that is above the greatest flow, the unit goes on with the greatest and gives less; below its
+ * least power, or where another rule breaks, it stops. Rules wait until the outlet's plenum is swept,
+ * 10 minutes at most (see rollOut, whose timing within a step this follows). Past a stop, and past
+ * the commanded end, copies of the beds go on so that every rule has a time.
+ *
+ * @param pieces ramps and runs of one direction, one after the other
+ * @returns the run, and what was delivered
+ */
+export function marchEpisode(
+  model: AheadModel,
+  ahead: BedsAhead,
+  pieces: readonly Piece[],
+  options: MarchOptions,
+): { episode: Episode; delivered: Delivered[] } {
+  const first = pieces[0] as Piece;
+  const last = pieces[pieces.length - 1] as Piece;
+  const direction = first.mode as Direction;
+  const run = startRun(model, ahead, direction, first.from_s);
+  const delivered: Delivered[] = [];
+  let stopped: number | null = null;
+  for (const piece of pieces) {
+    if (stopped !== null) break;
+    while (stopped === null && run.t < piece.to_s - 1e-6) {
+      const dt = Math.min(stepOf(run, options.step_s), piece.to_s - run.t);
+      const from = run.t;
+      const power0 = powerAt(piece, from);
+      const power1 = powerAt(piece, from + dt);
+      const made = stepRun(model, ahead, run, Math.abs(power0 + power1) / 2, dt, options.works);
+      stopped = made.stopped_s;
+      if (stopped !== null) break;
+      const share = made.share;
+      delivered.push({
+        from_s: from,
+        to_s: run.t,
+        power0_W: power0 * share,
+        power1_W: power1 * share,
+      });
+      options.each?.(run.t, ahead);
+    }
+  }
+  const at = stopped ?? run.t;
+  const on = copyAhead(ahead);
+  const power = Math.abs(stopped === null ? last.power1_W : powerAt(pieceAt(pieces, at), at));
+  const until = stopped === null ? run.t + options.beyond_s : Number.POSITIVE_INFINITY;
+  if (options.beyond_s > 0 || stopped !== null) followOn(model, on, run, power, until, options);
+  let best = Number.POSITIVE_INFINITY;
+  let cause: EndCause = 'empty';
+  run.times.forEach((time, r) => {
+    if (time < best) {
+      best = time;
+      cause = RULES[r] as EndCause;
+    }
+  });
+  return {
+    episode: {
+      direction,
+      from_s: first.from_s,
+      to_s: last.to_s,
+      times_s: run.times,
+      first_s: best,
+      ends_by: cause,
+      stopped_s: stopped,
+      derated_s: run.derated,
+    },
+    delivered: stopped === null ? delivered : cutAt(delivered, stopped),
+  };
+}
+
+function startRun(model: AheadModel, ahead: BedsAhead, direction: Direction, from_s: number): Run {
+  model.stores.forEach((store, i) => {
+    ahead.left_K[i] = endOfBed(store, ahead.beds[i] as Float64Array[], OUTLET[direction]);
+  });
+  return {
+    direction,
+    from_s,
+    t: from_s,
+    swept: false,
+    sweptMass: model.stores.map(() => 0),
+    lags: model.stores.map(() => 0),
+    workBefore: Number.NaN,
+    flow: 0,
+    first: Number.POSITIVE_INFINITY,
+    derated: null,
+    times: new Float64Array(RULES.length).fill(Number.POSITIVE_INFINITY),
+    before: new Float64Array(RULES.length).fill(Number.NaN),
+    beforeAt: new Float64Array(RULES.length),
+  };
+}
+
+/** Longest next step of a run [s]. */
+function stepOf(run: Run, step_s: number): number {
+  return run.swept ? step_s : step_s / SWEEP_PARTS;
+}
+
+/**
+ * One step: holds the rules against the present, then moves the beds by `dt`. Where a rule that
+ * stops the unit is found broken, nothing moves and the time of the stop is told.
+ */
+function stepRun(
+  model: AheadModel,
+  ahead: BedsAhead,
+  run: Run,
+  power_W: number,
+  dt: number,
+  works: MarchOptions['works'],
+  goOn = false,
+): { stopped_s: number | null; share: number } {
+  const { direction, t } = run;
+  const end = OUTLET[direction];
+  const seen = run.swept ? ahead.ends_K.map((ends) => ends[end]) : ahead.left_K;
+  const outlets = outletsOf(model, seen);
+  const point = model.machine.operate(direction, outlets, model.ambient_K);
+  const work = point.specificWork_J_kg;
+  const needed = flowFor(model, direction, power_W, work, run.flow);
+  const limits = model.unit.limits;
+  const most = limits[direction].flow_max_kg_s;
+  const drop = worstDrop(model, ahead, Math.min(needed, most));
+  const margins = marginsOf(model, direction, outlets, needed, drop, work);
+  const elapsed = t - run.from_s;
+  const plena = ahead.ends_K.map((ends) => ends[end]);
+  if (
+    !run.swept &&
+    (elapsed >= SWEEP_MOST_S || isSwept(model.stores, plena, run.sweptMass, elapsed, end))
+  ) {
+    run.swept = true;
+  }
+  if (run.swept) noteBreaks(model, run, margins);
+  const greatest = needed > most ? Math.max(0, powerOf(model, direction, most, work)) : power_W;
+  const least = limits[direction].power_min_W || LEAST_SHARE * power_W;
+  const tooLittle = needed > most && (!(work > 0) || greatest < Math.min(least, power_W));
+  const stops = [0, 1, 3, 4].map((r) => run.times[r] as number);
+  const stop = Math.min(...stops, tooLittle && run.swept ? t : Number.POSITIVE_INFINITY);
+  if (!goOn && stop <= t) return { stopped_s: Math.max(run.from_s, stop), share: 0 };
+  if (run.swept && needed > most) run.derated ??= Math.max(run.from_s, run.times[2] as number);
+  // The flow of a step is that of its middle, by a straight line through the last two.
+  const mean = run.lags.reduce((sum, lag) => sum + lag, 0) / run.lags.length;
+  const trend = Number.isFinite(run.workBefore) ? work - run.workBefore : 0;
+  const middle = work + trend * (0.5 + mean / dt);
+  const wanted = flowFor(model, direction, power_W, middle > 0 ? middle : work, run.flow);
+  // Past the first broken rule the flow may run away; the rest only serves the other rules' times.
+  const flow = Math.min(wanted, goOn ? 2 * most : most);
+  run.workBefore = run.swept ? work : Number.NaN;
+  run.flow = flow;
+  model.stores.forEach((store, i) => {
+    const plenum = plena[i] as number;
+    run.lags[i] = flow > 0 ? excessLag(store, plenum, ahead.left_K[i] as number, flow, dt, end) : 0;
+    run.sweptMass[i] = (run.sweptMass[i] as number) + flow * dt;
+  });
+  stepAhead(model, ahead, direction, flow, point.inlets, dt, works);
+  run.t = t + dt;
+  const share = power_W > 0 && wanted > most ? Math.min(1, greatest / power_W) : 1;
+  return { stopped_s: null, share };
+}
+
+/** Margins of the rules, in their order; each is positive while its rule holds, NaN = not a rule here. */
+function marginsOf(
+  model: AheadModel,
+  direction: Direction,
+  outlets: { hot_K: number; cold_K: number | null },
+  flow_kg_s: number,
+  drop_Pa: number,
+  work_J_kg: number,
+): number[] {
+  const { limits } = model.unit;
+  const { hot_K } = outlets;
+  const cold_K = outlets.cold_K ?? Number.NaN;
+  const charging = direction === 'charge';
+  const hot = charging
+    ? (limits.charge_hot_outlet_max_K ?? Number.NaN) - hot_K
+    : hot_K - (limits.hot_outlet_min_K ?? Number.NaN);
+  const cold = charging
+    ? cold_K - (limits.charge_cold_outlet_min_K ?? Number.NaN)
+    : (limits.cold_outlet_max_K ?? Number.NaN) - cold_K;
+  const most = limits[direction].flow_max_kg_s;
+  return [
+    hot,
+    cold,
+    Number.isFinite(flow_kg_s) ? most - flow_kg_s : -1,
+    limits.pressure_drop_max_Pa === null ? Number.NaN : limits.pressure_drop_max_Pa - drop_Pa,
+    work_J_kg,
+  ];
+}
+
+/** Notes the time at which each rule was first found broken, by a straight line within its step. */
+function noteBreaks(model: AheadModel, run: Run, margins: readonly number[]): void {
+  const mean = run.lags.reduce((sum, lag) => sum + lag, 0) / run.lags.length;
+  margins.forEach((margin, r) => {
+    if (run.times[r] !== Number.POSITIVE_INFINITY || Number.isNaN(margin)) return;
+    const kind = r === 0 ? 'hot' : r === 1 ? 'cold' : null;
+    const store = kind === null ? -1 : model.stores.findIndex((s) => s.store.kind === kind);
+    const at = run.t - (run.lags[store] ?? mean);
+    if (margin > 0) {
+      run.before[r] = margin;
+      run.beforeAt[r] = at;
+      return;
+    }
+    const last = run.before[r] as number;
+    // Broken at its very first test: there never was a run.
+    run.times[r] = Number.isNaN(last)
+      ? run.from_s
+      : at - ((at - (run.beforeAt[r] as number)) * margin) / (margin - last);
+    run.first = Math.min(run.first, run.times[r] as number);
+  });
+}
+
+/** Goes on at a constant power so that the rules not yet broken have a time. */
+function followOn(
+  model: AheadModel,
+  ahead: BedsAhead,
+  run: Run,
+  power_W: number,
+  until_s: number,
+  options: MarchOptions,
+): void {
+  if (!(power_W > 0)) return;
+  for (;;) {
+    const follow = run.first + FOLLOW * Math.max(run.first - run.from_s, options.step_s);
+    if (run.t >= Math.min(until_s, follow) || run.first <= run.from_s) return;
+    stepRun(model, ahead, run, power_W, stepOf(run, options.step_s), options.works, true);
+    if (!Number.isFinite(run.flow)) return;
+  }
+}
+
+function powerAt(piece: Piece, t_s: number): number {
+  const { from_s, to_s, power0_W, power1_W } = piece;
+  return power0_W === power1_W
+    ? power0_W
+    : power0_W + ((power1_W - power0_W) * (t_s - from_s)) / (to_s - from_s);
+}
+
+function pieceAt(pieces: readonly Piece[], t_s: number): Piece {
+  return pieces.find((piece) => t_s < piece.to_s) ?? (pieces[pieces.length - 1] as Piece);
+}
+
+function cutAt(delivered: readonly Delivered[], t_s: number): Delivered[] {
+  return delivered.flatMap((part) => {
+    if (part.from_s >= t_s) return [];
+    if (part.to_s <= t_s) return [part];
+    const share = (t_s - part.from_s) / (part.to_s - part.from_s);
+    const power1_W = part.power0_W + (part.power1_W - part.power0_W) * share;
+    return [{ ...part, to_s: t_s, power1_W }];
+  });
+}

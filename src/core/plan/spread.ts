@@ -1,0 +1,169 @@
+import { cholesky } from '../dispatch/earliestQuantiles.js';
+import { MODEL_SIGMA } from '../dispatch/hours.js';
+import { addProfile } from '../dispatch/profileCovariance.js';
+import { BUMP_K, BUMPS } from '../dispatch/roller.js';
+import { RULES } from '../dispatch/rollout.js';
+import type { EndCause } from '../estimate.js';
+import { unseenSigma } from '../track/unseenFlow.js';
+import type { UnitModel } from '../unitModel.js';
+import type { UnitState } from '../unitState.js';
+import type { Command } from './command.js';
+import type { Course } from './course.js';
+import { latinNormals, NORMAL_COUNT } from './latinNormals.js';
+import type { Change, Outlook } from './outlook.js';
+
+/** A rule's time in a run of a plan. */
+export interface RuleTime {
+  /** Index of the run among the course's episodes, and of the rule in `RULES`. */
+  readonly episode: number;
+  readonly rule: number;
+  readonly cause: EndCause;
+  /** By the best march [s from the plan's start]. */
+  readonly time_s: number;
+}
+
+/** Where the rules of a plan's runs stand, and how surely: jointly Gaussian. */
+export interface PlanSpread {
+  readonly course: Course;
+  readonly times: readonly RuleTime[];
+  /** [s2], symmetric. */
+  readonly covariance: readonly Float64Array[];
+}
+
+const PROBE_LOG = 0.01;
+const PROBE_AMBIENT_K = 2;
+/** Ambient temperature over the hours ahead against that of now [K]: common practice, no source. */
+const AMBIENT_SIGMA_K = 3;
+
+/**
+ * Times at which the stop rules of each run of a plan break, with their covariance: the gradient of
+ * every time with respect to the profiles, the flow and transfer factors, the machine's work in both
+ * directions and the ambient temperature, from marches with common numbers (see computeHours, whose
+ * sources of uncertainty these are).
+ */
+export function spreadOf(outlook: Outlook, command: Command): PlanSpread {
+  const { model, state } = outlook;
+  const course = outlook.best(command);
+  const times = course.episodes.flatMap((episode, e) =>
+    RULES.flatMap((cause, rule): RuleTime[] => {
+      const time_s = episode.times_s[rule] as number;
+      return Number.isFinite(time_s) ? [{ episode: e, rule, cause, time_s }] : [];
+    }),
+  );
+  const covariance = times.map(() => new Float64Array(times.length));
+  if (times.length === 0) return { course, times, covariance };
+  const at = (of: Course, q: RuleTime): number => of.episodes[q.episode]?.times_s[q.rule] as number;
+  const base = outlook.march(command);
+  const slope = (of: Course, from: Course, delta: number): number[] =>
+    times.map((q) => {
+      const change = (at(of, q) - at(from, q)) / delta;
+      return Number.isFinite(change) ? change : 0;
+    });
+  const along = (change: Change, delta: number): number[] =>
+    slope(outlook.march(command, change), base, delta);
+  const fine = outlook.marchFine(command);
+  const factors = model.stores.map((store, s) => {
+    const bumps = Array.from({ length: BUMPS }, (_, bump) => along({ store: s, bump }, BUMP_K));
+    const flow = along({ store: s, flow: PROBE_LOG }, PROBE_LOG);
+    const better = outlook.marchFine(command, { store: s, transfer: PROBE_LOG });
+    const transfer = slope(better, fine, PROBE_LOG);
+    addUnseen(model, state, s, course, times, command, covariance);
+    return addProfile(
+      store,
+      state.stores[s] as UnitState['stores'][number],
+      { bumps, flow, transfer },
+      covariance,
+    );
+  });
+  const runs = new Set(course.episodes.map((episode) => episode.direction));
+  for (const direction of ['discharge', 'charge'] as const) {
+    factors.push(
+      runs.has(direction) ? along({ [direction]: PROBE_LOG }, PROBE_LOG) : times.map(() => 0),
+    );
+  }
+  const ambient = along({ ambient_K: PROBE_AMBIENT_K }, PROBE_AMBIENT_K);
+  const length = (q: RuleTime): number => q.time_s - (course.episodes[q.episode]?.from_s as number);
+  times.forEach((a, i) => {
+    times.forEach((b, j) => {
+      let sum = Math.max(0, length(a)) * Math.max(0, length(b)) * MODEL_SIGMA ** 2;
+      sum += (ambient[i] as number) * (ambient[j] as number) * AMBIENT_SIGMA_K ** 2;
+      outlook.calibration.covariance.forEach((row, k) => {
+        row.forEach((value, l) => {
+          sum += (factors[k]?.[i] as number) * (factors[l]?.[j] as number) * value;
+        });
+      });
+      (covariance[i] as Float64Array)[j]! += sum;
+    });
+  });
+  return { course, times, covariance };
+}
+
+/** What flow that no string sees may do to a store's own rules; see computeHours. */
+function addUnseen(
+  model: UnitModel,
+  state: UnitState,
+  s: number,
+  course: Course,
+  times: readonly RuleTime[],
+  command: Command,
+  covariance: readonly Float64Array[],
+): void {
+  const store = model.stores[s] as UnitModel['stores'][number];
+  const own = store.store.kind === 'hot' ? 'hot_outlet' : 'cold_outlet';
+  const soc = unseenSigma(store, state.stores[s] as UnitState['stores'][number]);
+  const { unit } = model;
+  const sigma = times.map((q) => {
+    if (q.cause !== own && q.cause !== 'flow') return 0;
+    const episode = course.episodes[q.episode] as Course['episodes'][number];
+    const power = powerAbout(command, episode.from_s, Math.min(q.time_s, episode.to_s));
+    const lasts_s = power > 0 ? (unit.rated_hours * 3600 * unit.rated_power_W) / power : 0;
+    // More charge of a store lengthens a discharge and shortens a charge.
+    return (episode.direction === 'discharge' ? 1 : -1) * soc * lasts_s;
+  });
+  sigma.forEach((a, i) => {
+    sigma.forEach((b, j) => {
+      (covariance[i] as Float64Array)[j]! += a * b;
+    });
+  });
+}
+
+/** Mean commanded power of the running pieces between two times [W]. */
+function powerAbout(command: Command, from_s: number, to_s: number): number {
+  let energy = 0;
+  let time = 0;
+  for (const piece of command.pieces) {
+    const from = Math.max(from_s, piece.from_s);
+    const to = Math.min(to_s, piece.to_s);
+    if (piece.mode === 'stand' || !(to > from)) continue;
+    energy += (Math.abs(piece.power0_W + piece.power1_W) / 2) * (to - from);
+    time += to - from;
+  }
+  return time > 0 ? energy / time : 0;
+}
+
+/**
+ * When each run first breaks a rule, over fixed points of the joint distribution.
+ *
+ * @returns per episode, `NORMAL_COUNT` times [s], Infinity where nothing breaks within the time looked
+ *   ahead; points of the same index belong together
+ */
+export function firstBreaks(spread: PlanSpread): Float64Array[] {
+  const { times, covariance, course } = spread;
+  const breaks = course.episodes.map(() =>
+    new Float64Array(NORMAL_COUNT).fill(Number.POSITIVE_INFINITY),
+  );
+  const factor = cholesky(covariance);
+  const points = latinNormals(times.length);
+  times.forEach((q, a) => {
+    const own = breaks[q.episode] as Float64Array;
+    const from_s = course.episodes[q.episode]?.from_s as number;
+    for (let k = 0; k < NORMAL_COUNT; k++) {
+      let value = q.time_s;
+      for (let b = 0; b <= a; b++) {
+        value += (factor[a]?.[b] as number) * (points[b]?.[k] as number);
+      }
+      own[k] = Math.min(own[k] as number, Math.max(from_s, value));
+    }
+  });
+  return breaks;
+}
