@@ -5,7 +5,7 @@ const PROCESSES = ['test/{adapters,chain,commands,daemon,house}/**/*.test.ts'];
 
 /** A process per file: a native module or a signal handler of one test reaches no other. */
 const shared = {
-  globalSetup: ['test/support/global.ts'],
+  globalSetup: 'test/support/global.ts',
   pool: 'forks',
   testTimeout: 30_000,
   hookTimeout: 30_000,

@@ -1,17 +1,24 @@
 import { parentPort, workerData } from 'node:worker_threads';
 import { loadSite } from './config/load.js';
 import type { UnitDefinition } from './core/definitions.js';
+import { answerPlan, type PlanAnswer, type PlanQuestion } from './core/plan/ask.js';
 import { hoursAt, restoreUnit, type UnitSnapshot } from './core/unit.js';
 import { type UnitWorth, unitWorth } from './core/worth/unitWorth.js';
 import { reasonOf } from './errors.js';
 
-/** A question to a worker: hours at some powers, or what thermocouples are worth. */
+/** A question to a worker: hours at some powers, what lies ahead, or what thermocouples are worth. */
 export type WorkerQuestion =
   | {
       readonly kind: 'hours';
       readonly unit: string;
       readonly snapshot: UnitSnapshot;
       readonly powers_W: readonly number[];
+    }
+  | {
+      readonly kind: 'plan';
+      readonly unit: string;
+      readonly snapshot: UnitSnapshot;
+      readonly question: PlanQuestion;
     }
   | {
       readonly kind: 'sensors';
@@ -25,7 +32,7 @@ export interface NumberedQuestion {
   readonly question: WorkerQuestion;
 }
 
-export type Answer = ReturnType<typeof hoursAt> | UnitWorth | null;
+export type Answer = ReturnType<typeof hoursAt> | PlanAnswer | UnitWorth | null;
 
 /** What was answered, or the words of what went wrong. */
 export interface WorkerReply {
@@ -37,6 +44,9 @@ export interface WorkerReply {
 function answerTo(unit: UnitDefinition, question: WorkerQuestion): Answer {
   if (question.kind === 'hours') {
     return hoursAt(unit, restoreUnit(unit, question.snapshot), question.powers_W);
+  }
+  if (question.kind === 'plan') {
+    return answerPlan(unit, restoreUnit(unit, question.snapshot), question.question);
   }
   const { snapshot } = question;
   const run = unitWorth(unit, snapshot === null ? null : restoreUnit(unit, snapshot));

@@ -1,5 +1,6 @@
 import type { UnitDefinition } from '../core/definitions.js';
 import type { DispatchAnswer } from '../core/estimate.js';
+import { answerPlan, type PlanAnswer, type PlanQuestion } from '../core/plan/ask.js';
 import type { Scan } from '../core/scan/scan.js';
 import {
   advance,
@@ -22,6 +23,7 @@ export interface Core {
   saveUnit(state: UnitState): UnitSnapshot;
   restoreUnit(unit: UnitDefinition, snapshot: UnitSnapshot): UnitState;
   hoursAt(unit: UnitDefinition, state: UnitState, powers_W: readonly number[]): DispatchAnswer[];
+  answerPlan(unit: UnitDefinition, state: UnitState, question: PlanQuestion): PlanAnswer;
   unitWorth(unit: UnitDefinition, state: UnitState | null): Generator<number, UnitWorth | null>;
   hoursDue(unit: UnitDefinition, last_ms: number | null, now_ms: number): boolean;
 }
@@ -32,6 +34,7 @@ export const realCore: Core = {
   saveUnit,
   restoreUnit,
   hoursAt,
+  answerPlan,
   unitWorth,
   hoursDue,
 };

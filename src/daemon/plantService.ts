@@ -8,6 +8,7 @@ import type {
   UnitNow,
 } from '../adapters/http/service.js';
 import type { DispatchAnswer } from '../core/estimate.js';
+import type { PlanAnswer, PlanQuestion } from '../core/plan/ask.js';
 import type { WatchEvent } from '../core/watch/event.js';
 import type { UnitWorth } from '../core/worth/unitWorth.js';
 import type { DaemonClock } from './clock.js';
@@ -69,6 +70,15 @@ export class DaemonService implements PlantService {
     const snapshot = runner.snapshot();
     const powers_W = powers_MW.map((power) => power * 1e6);
     return { time, answers: await this.parts.questions.hours(runner.unit, snapshot, powers_W) };
+  }
+
+  async plan(id: string, question: PlanQuestion): Promise<{ time: string; answer: PlanAnswer }> {
+    const runner = this.runner(id);
+    const time = runner.view.estimate?.time;
+    if (time === undefined) throw new RangeError(`unit ${id} must have an estimate, got none yet`);
+    this.parts.counters.add('questions');
+    const answer = await this.parts.questions.plan(runner.unit, runner.snapshot(), question);
+    return { time, answer };
   }
 
   async sensors(id: string, over: 'now' | 'day'): Promise<UnitWorth | null> {

@@ -1,6 +1,7 @@
 import { setImmediate } from 'node:timers/promises';
 import type { UnitDefinition } from '../core/definitions.js';
 import type { DispatchAnswer } from '../core/estimate.js';
+import type { PlanAnswer, PlanQuestion } from '../core/plan/ask.js';
 import type { UnitSnapshot } from '../core/unit.js';
 import type { UnitWorth } from '../core/worth/unitWorth.js';
 import type { Core } from './core.js';
@@ -39,6 +40,20 @@ export class Questions {
     }
     const question = { kind: 'hours', unit: unit.id, snapshot, powers_W } as const;
     return (await this.quick.ask(question)) as DispatchAnswer[];
+  }
+
+  /** What lies ahead of a state: offers, schedules, headroom and their like. */
+  async plan(
+    unit: UnitDefinition,
+    snapshot: UnitSnapshot,
+    question: PlanQuestion,
+  ): Promise<PlanAnswer> {
+    if (this.quick === null) {
+      await setImmediate();
+      return this.core.answerPlan(unit, this.core.restoreUnit(unit, snapshot), question);
+    }
+    const asked = { kind: 'plan', unit: unit.id, snapshot, question } as const;
+    return (await this.quick.ask(asked)) as PlanAnswer;
   }
 
   /**

@@ -80,6 +80,9 @@ export const fakeCore: Core = {
   },
   saveUnit: (state) => ({ version: 1, state: structuredClone(state) }) as UnitSnapshot,
   restoreUnit: (_unit, snapshot) => structuredClone(snapshot.state),
+  answerPlan: () => {
+    throw new RangeError('this core has no plan');
+  },
   hoursAt: (_unit, state, powers_W) =>
     powers_W.map((power_W) => answer(power_W, memory(state).mix)),
   // biome-ignore lint/correctness/useYield: an answer that takes no time

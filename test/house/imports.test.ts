@@ -27,6 +27,7 @@ function adapter(name: string, ...libraries: RegExp[]): Rule {
 /** Who may import what, as in the design. Who stands in no rule may import nothing. */
 const RULES: readonly Rule[] = [
   { of: /^src\/core\/track\/scalarFilter\.ts$/, may: [core, /^kalmanjs$/] },
+  { of: /^src\/core\/plan\/(ceilings|localTime)\.ts$/, may: [core, /^luxon$/] },
   { of: /^src\/core\//, may: [core, /^ml-levenberg-marquardt$/] },
   // A bundle for the browser: nothing of the program itself runs there.
   {

@@ -16,6 +16,7 @@ import { HttpFault } from './faults.js';
 import { JsonWriter } from './json.js';
 import { alarmRoutes } from './routes/alarms.js';
 import { historyRoutes } from './routes/history.js';
+import { planRoutes } from './routes/plan.js';
 import { statusRoutes } from './routes/status.js';
 import { streamRoutes } from './routes/stream.js';
 import { unitRoutes } from './routes/units.js';
@@ -166,7 +167,14 @@ export async function createHttpApp(
       typed.addHook('onSend', async (_request, reply) => {
         if (!reply.hasHeader('cache-control')) reply.header('cache-control', 'no-store');
       });
-      for (const add of [statusRoutes, unitRoutes, historyRoutes, alarmRoutes, streamRoutes]) {
+      for (const add of [
+        statusRoutes,
+        unitRoutes,
+        planRoutes,
+        historyRoutes,
+        alarmRoutes,
+        streamRoutes,
+      ]) {
         add(typed, context);
       }
     },

@@ -12,6 +12,7 @@ export const FAULT_CODES = [
   'unreadable_body',
   'not_acceptable',
   'no_estimate_yet',
+  'estimate_stale',
   'too_many_requests',
   'too_many_streams',
   'page_not_built',

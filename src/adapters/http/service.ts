@@ -1,5 +1,6 @@
 import type { UnitDefinition } from '../../core/definitions.js';
 import type { DispatchAnswer, Estimate, ProfileView } from '../../core/estimate.js';
+import type { PlanAnswer, PlanQuestion } from '../../core/plan/ask.js';
 import type { ScanCounts } from '../../core/scanCounts.js';
 import type { WatchEvent } from '../../core/watch/event.js';
 import type { UnitWorth } from '../../core/worth/unitWorth.js';
@@ -50,6 +51,8 @@ export interface PlantService {
     unit: string,
     powers_MW: readonly number[],
   ): Promise<{ time: string; answers: DispatchAnswer[] }>;
+  /** What lies ahead of the present state, with the time of the estimate it stands on. */
+  plan(unit: string, question: PlanQuestion): Promise<{ time: string; answer: PlanAnswer }>;
   /**
    * What thermocouples are worth over the hours ahead of the present state, or over a settled day.
    * null before every store has started.

@@ -262,6 +262,7 @@ describe('the good answers, each held against the schema that documents it', () 
       '/api/stream',
       '/api/units',
       '/api/units/{unit}',
+      '/api/units/{unit}/headroom',
       '/api/units/{unit}/history',
       '/api/units/{unit}/hours',
       '/api/units/{unit}/profile',

@@ -13,6 +13,8 @@ import type {
   ProfileView,
   StoreEstimate,
 } from '../../../src/core/estimate.js';
+import type { PlanQuestion } from '../../../src/core/plan/ask.js';
+import type { Headroom } from '../../../src/core/plan/headroom.js';
 import type { ScanCounts } from '../../../src/core/scanCounts.js';
 import type { WatchEvent } from '../../../src/core/watch/event.js';
 import type { UnitWorth } from '../../../src/core/worth/unitWorth.js';
@@ -191,6 +193,22 @@ export class ScriptedPlant implements PlantService {
       },
       ends_by: power_MW > 3 ? 'flow' : 'hot_outlet',
     };
+  }
+
+  failPlan: Error | null = null;
+  /** Questions about what lies ahead, as they came. */
+  readonly planAsked: PlanQuestion[] = [];
+
+  async plan(unit: string, question: PlanQuestion) {
+    if (this.failPlan !== null) throw this.failPlan;
+    if (this.now(unit) === undefined) throw new RangeError(`unit: ${unit}`);
+    this.planAsked.push(question);
+    const answer = question.ask.powers_W.map((power_W): Headroom => {
+      const { hours, energy_MWh_el } = this.answer(power_W / 1e6);
+      const power_MW_el = power_W / 1e6;
+      return { power_MW_el, hours, energy_MWh_el, ends_by: 'hot_outlet', refused: null };
+    });
+    return { time: this.time(), answer };
   }
 
   async hours(unit: string, powers_MW: readonly number[]) {

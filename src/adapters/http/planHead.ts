@@ -1,0 +1,61 @@
+import type { PlanAnswers, PlanQuestion } from '../../core/plan/ask.js';
+import { HttpFault } from './faults.js';
+import type { PlantService, UnitNow } from './service.js';
+import { ageOf } from './views.js';
+
+/** What every figure about what lies ahead takes for granted. */
+export const GIVEN =
+  'the machine runs: outages that are not in the configuration are left out; all MWh_el at the connection point';
+
+/**
+ * Asks about what lies ahead of a unit's present state, with the head that every such answer has.
+ *
+ * @throws HttpFault where there is no estimate, where it is stale and stale ones are refused, where
+ *   the question is wrong, or where it could not be answered
+ */
+export async function askPlan<K extends PlanQuestion['kind']>(
+  service: PlantService,
+  now: UnitNow,
+  stale: 'refuse' | 'mark' | undefined,
+  question: PlanQuestion & { readonly kind: K },
+) {
+  const unit = now.unit.id;
+  if (now.estimate === null) {
+    throw new HttpFault(503, 'no_estimate_yet', `unit ${unit} has no estimate yet`, {
+      field: 'unit',
+      value: unit,
+    });
+  }
+  if (now.stale && stale !== 'mark') {
+    const age = now.age_s === null ? 'unknown' : `${Math.round(now.age_s)} s`;
+    throw new HttpFault(
+      503,
+      'estimate_stale',
+      `the estimate of unit ${unit} is stale (its newest reading is ${age} old); ask with stale=mark for an answer all the same`,
+      { field: 'stale', value: stale ?? 'refuse', expected: 'mark' },
+    );
+  }
+  let found: Awaited<ReturnType<PlantService['plan']>>;
+  try {
+    found = await service.plan(unit, question);
+  } catch (cause) {
+    const why = cause instanceof Error ? cause.message : String(cause);
+    const fault = new HttpFault(503, 'question_failed', `${question.kind} of unit ${unit}: ${why}`);
+    fault.cause = cause;
+    throw fault;
+  }
+  const { time } = found;
+  const after = service.now(unit) ?? now;
+  return {
+    head: {
+      unit,
+      time,
+      age_s: ageOf(after, time),
+      valid_until: new Date(Date.parse(time) + now.unit.hours_every_s * 1000).toISOString(),
+      stale: after.stale,
+      quality: now.estimate.quality,
+      given: GIVEN,
+    },
+    answer: found.answer as PlanAnswers[K],
+  };
+}

@@ -1,0 +1,31 @@
+import type { UnitDefinition } from '../definitions.js';
+import { unitModel } from '../unitModel.js';
+import type { UnitState } from '../unitState.js';
+import { planContext } from './context.js';
+import { type Headroom, type HeadroomAsk, headroomOf } from './headroom.js';
+
+/** A question about what lies ahead of a unit's present state. */
+export type PlanQuestion = { readonly kind: 'headroom'; readonly ask: HeadroomAsk };
+
+/** What each kind of question is answered with. */
+export interface PlanAnswers {
+  readonly headroom: Headroom[];
+}
+export type PlanAnswer = PlanAnswers[keyof PlanAnswers];
+
+/**
+ * Answers a question from the present state, which is left as it is.
+ *
+ * @throws RangeError for a wrong question, and before every store has started
+ */
+export function answerPlan(
+  unit: UnitDefinition,
+  state: UnitState,
+  question: PlanQuestion,
+): PlanAnswer {
+  const context = planContext(unitModel(unit), state);
+  switch (question.kind) {
+    case 'headroom':
+      return headroomOf(context, question.ask);
+  }
+}
