@@ -1,3 +1,4 @@
+import { oneLessDecay, timesMeanDecay } from './decay.js';
 import { type BedTables, fluidEnthalpyAt, fluidTemperatureAt } from './tables.js';
 
 /**
@@ -162,53 +163,85 @@ export function bedSubstep(
 
 /** Reads temperatures and coefficients from the tables. */
 function prepare(tables: BedTables, enthalpy: Float64Array, step: BedStep, work: BedWork): void {
-  const cells = work.cells;
+  if (step.massFlux_kg_m2s === 0) {
+    prepareStanding(tables, enthalpy, work);
+    return;
+  }
+  // Everything that the loop reads stands in a variable: looked up once, not at each cell.
+  const { cells, temperature, heatCapacity, equilibrium, pickup, fluidHeatCapacity } = work;
+  const { conductivity, gasLag_m, relaxed, exchange, filmSlope, sharpest } = work;
+  const { inverse_dH, dH, stagnant, temperature_K: nodes, fluidEnthalpy } = tables;
+  const { filmFlow, filmStill, particleResistance: resistance } = tables;
+  const { heatCapacity: heat, fluidHeatCapacity: fluidHeat } = tables;
   const dx = tables.bed.length_m / cells;
   const flux = Math.abs(step.massFlux_kg_m2s);
-  const flux06 = flux > 0 ? flux ** 0.6 : 0;
+  const flux06 = flux ** 0.6;
   const surface = step.heatTransferFactor * tables.surface_m2_m3 * tables.bed.heat_transfer_factor;
+  const perSurface = flux / surface;
   const disperse = tables.mixing * flux * tables.bed.particle_diameter_m;
+  const passed = (flux * step.dt_s) / dx;
   const last = tables.segments - 1;
   for (let i = 0; i < cells; i++) {
-    const scaled = (enthalpy[i] as number) * tables.inverse_dH;
+    const scaled = (enthalpy[i] as number) * inverse_dH;
     let s = Math.floor(scaled);
     if (s < 0) s = 0;
     else if (s > last) s = last;
-    const t0 = tables.temperature_K[s] as number;
-    const c = tables.heatCapacity[s] as number;
-    work.temperature[i] = t0 + ((scaled - s) * tables.dH) / c;
-    work.heatCapacity[i] = c;
-    if (flux === 0) {
-      work.pickup[i] = 0;
-      work.gasLag_m[i] = 0;
-      work.conductivity[i] = tables.stagnant[s] as number;
-      continue;
-    }
-    const cf = tables.fluidHeatCapacity[s] as number;
-    work.equilibrium[i] = (tables.fluidEnthalpy[s] as number) + ((scaled - s) * cf * tables.dH) / c;
-    const moving = (tables.filmFlow[s] as number) * flux06;
-    const film = (tables.filmStill[s] as number) + moving;
-    const inside = 1 + film * (tables.particleResistance[s] as number);
-    const hv = (surface * film) / inside;
-    const lag = (flux * cf) / hv;
-    const n = dx / lag;
-    const a = 1 - Math.exp(-n);
-    const p = (a * flux * cf * step.dt_s) / (c * dx);
-    // For p -> 0 the quotient (1 - exp(-p))/p loses digits; its series is exact to p^3.
-    const relax = p > 1e-3 ? (1 - Math.exp(-p)) / p : 1 - p / 2 + (p * p) / 6;
-    work.pickup[i] = a * relax;
-    work.fluidHeatCapacity[i] = cf;
-    work.gasLag_m[i] = lag;
-    work.relaxed[i] = a;
-    work.exchange[i] = p;
-    work.filmSlope[i] = (0.6 * moving) / (film * inside);
-    const net =
-      (tables.stagnant[s] as number) +
-      disperse * cf -
-      numericalConductivity(flux * cf * dx, n, a, p);
+    const c = heat[s] as number;
+    const cf = fluidHeat[s] as number;
+    const within = ((scaled - s) * dH) / c;
+    temperature[i] = (nodes[s] as number) + within;
+    heatCapacity[i] = c;
+    equilibrium[i] = (fluidEnthalpy[s] as number) + within * cf;
+    const moving = (filmFlow[s] as number) * flux06;
+    const film = (filmStill[s] as number) + moving;
+    const inside = 1 + film * (resistance[s] as number);
+    const shared = 1 / (film * inside);
+    const lag = perSurface * cf * (inside * inside * shared);
+    relaxed[i] = dx / lag;
+    fluidHeatCapacity[i] = cf;
+    gasLag_m[i] = lag;
+    filmSlope[i] = 0.6 * moving * shared;
+    conductivity[i] = (stagnant[s] as number) + disperse * cf;
+  }
+  oneLessDecay(relaxed);
+  for (let i = 0; i < cells; i++) {
+    const a = relaxed[i] as number;
+    const cf = fluidHeatCapacity[i] as number;
+    pickup[i] = a;
+    exchange[i] = (a * passed * cf) / (heatCapacity[i] as number);
+  }
+  timesMeanDecay(exchange, pickup);
+  const fluxDx = flux * dx;
+  const inverse = 1 / dx;
+  for (let i = 0; i < cells; i++) {
+    const cf = fluidHeatCapacity[i] as number;
+    const lag = gasLag_m[i] as number;
+    const a = relaxed[i] as number;
+    const p = exchange[i] as number;
+    // As `numericalConductivity`, which a call for each cell would make dear.
+    const own = fluxDx * cf * ((2 - a + (p * p) / 6) / (2 * a) - lag * inverse);
+    const net = (conductivity[i] as number) - own;
     const least = -SHARPEN * flux * cf * lag;
-    work.sharpest[i] = net < least ? 1 : 0;
-    work.conductivity[i] = Math.max(net, least);
+    sharpest[i] = net < least ? 1 : 0;
+    conductivity[i] = Math.max(net, least);
+  }
+}
+
+function prepareStanding(tables: BedTables, enthalpy: Float64Array, work: BedWork): void {
+  const { cells, temperature, heatCapacity, conductivity } = work;
+  const { inverse_dH, dH, stagnant, temperature_K: nodes, heatCapacity: heat } = tables;
+  const last = tables.segments - 1;
+  work.pickup.fill(0);
+  work.gasLag_m.fill(0);
+  for (let i = 0; i < cells; i++) {
+    const scaled = (enthalpy[i] as number) * inverse_dH;
+    let s = Math.floor(scaled);
+    if (s < 0) s = 0;
+    else if (s > last) s = last;
+    const c = heat[s] as number;
+    temperature[i] = (nodes[s] as number) + ((scaled - s) * dH) / c;
+    heatCapacity[i] = c;
+    conductivity[i] = stagnant[s] as number;
   }
 }
 
@@ -224,36 +257,41 @@ function prepare(tables: BedTables, enthalpy: Float64Array, step: BedStep, work:
  * @param fluxHeatDx G cf dx [W/mK]
  */
 export function numericalConductivity(fluxHeatDx: number, n: number, a: number, p: number): number {
-  return fluxHeatDx * ((2 - a) / (2 * a) - 1 / n + (p * p) / (12 * a));
+  return fluxHeatDx * ((2 - a + (p * p) / 6) / (2 * a) - 1 / n);
 }
 
 /** Axial conduction and losses, explicit, in flux form; changes `enthalpy`. */
 function conduct(tables: BedTables, enthalpy: Float64Array, step: BedStep, work: BedWork): void {
-  const cells = work.cells;
+  const { cells, temperature, conductivity } = work;
   const bed = tables.bed;
+  const { ambient_K } = step;
   const dx = bed.length_m / cells;
-  const factor = step.dt_s / (dx * dx);
+  const factor = (0.5 * step.dt_s) / (dx * dx);
+  const wall = step.wallLoss_W_m3K * step.dt_s;
+  const perEnd = (bed.loss_factor * step.dt_s) / dx;
+  const last = cells - 1;
   let before = 0;
   let loss = 0;
-  const wall = step.wallLoss_W_m3K * step.dt_s;
-  for (let i = 0; i < cells; i++) {
-    let after = 0;
-    if (i + 1 < cells) {
-      const k = 0.5 * ((work.conductivity[i] as number) + (work.conductivity[i + 1] as number));
-      after = factor * k * ((work.temperature[i + 1] as number) - (work.temperature[i] as number));
-    }
-    let lost = wall * ((work.temperature[i] as number) - step.ambient_K);
-    if (i === 0 || i === cells - 1) {
-      const end = i === 0 ? bed.end_loss_W_m2K.charge_inlet : bed.end_loss_W_m2K.discharge_inlet;
-      lost +=
-        ((end * bed.loss_factor * step.dt_s) / dx) *
-        ((work.temperature[i] as number) - step.ambient_K);
-    }
+  let t = temperature[0] as number;
+  let k = conductivity[0] as number;
+  for (let i = 0; i < last; i++) {
+    const tNext = temperature[i + 1] as number;
+    const kNext = conductivity[i + 1] as number;
+    const after = factor * (k + kNext) * (tNext - t);
+    const lost = wall * (t - ambient_K);
     enthalpy[i] = (enthalpy[i] as number) + after - before - lost;
     loss += lost;
     before = after;
+    t = tNext;
+    k = kNext;
   }
-  work.loss_J_m2 = loss * dx;
+  const lostLast = wall * (t - ambient_K);
+  const atFirst =
+    bed.end_loss_W_m2K.charge_inlet * perEnd * ((temperature[0] as number) - ambient_K);
+  const atLast = bed.end_loss_W_m2K.discharge_inlet * perEnd * (t - ambient_K);
+  enthalpy[last] = (enthalpy[last] as number) - before - lostLast - atLast;
+  enthalpy[0] = (enthalpy[0] as number) - atFirst;
+  work.loss_J_m2 = (loss + lostLast + atFirst + atLast) * dx;
 }
 
 /** Gas along the flow; changes `enthalpy` and sets the outlet. */
@@ -263,16 +301,15 @@ function convect(tables: BedTables, enthalpy: Float64Array, step: BedStep, work:
   work.gasOut_J_m2 = 0;
   work.outlet_K = Number.NaN;
   if (flux === 0) return;
-  const cells = work.cells;
+  const { cells, pickup, equilibrium } = work;
   const dx = tables.bed.length_m / cells;
   const transfer = (flux * step.dt_s) / dx;
-  const forward = step.massFlux_kg_m2s > 0;
+  const along = step.massFlux_kg_m2s > 0 ? 1 : -1;
   const eIn = fluidEnthalpyAt(tables, step.inlet_K);
   let e = eIn;
-  for (let k = 0; k < cells; k++) {
-    const i = forward ? k : cells - 1 - k;
+  for (let k = 0, i = along > 0 ? 0 : cells - 1; k < cells; k++, i += along) {
     // The equilibrium belongs to the temperature before the step: conduction reads the same.
-    const taken = (work.pickup[i] as number) * (e - (work.equilibrium[i] as number));
+    const taken = (pickup[i] as number) * (e - (equilibrium[i] as number));
     e -= taken;
     enthalpy[i] = (enthalpy[i] as number) + transfer * taken;
   }
