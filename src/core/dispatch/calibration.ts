@@ -5,6 +5,7 @@ import type { TubeState } from '../track/tube.js';
 import type { UnitModel } from '../unitModel.js';
 import type { UnitState } from '../unitState.js';
 import { type Gaussian, independent, observe, transformed } from './gaussian.js';
+import { STRING_FLOW_SIGMA, sharedSigma, varianceNow } from './heatBalance.js';
 import type { HeatCapacity } from './heatCapacity.js';
 import { machineSpread } from './machineSpread.js';
 
@@ -12,7 +13,8 @@ import { machineSpread } from './machineSpread.js';
 export interface Calibration {
   /**
    * Per store ln(travel per metered kilogram over that of the model), then
-   * ln(work per metered kilogram over that of the model at rated flow): joint, one vector.
+   * ln(work per metered kilogram over that of the model at rated flow), discharging and, where asked
+   * for, charging: joint, one vector.
    */
   readonly joint: Gaussian;
   /** Heat capacity of each store's rock. */
@@ -30,11 +32,6 @@ const METER_SLOPE_SIGMA = 0.01;
  * this share of the mean ln(flow factor) of the stores.
  */
 const METER_BROKEN = 0.5;
-/**
- * Gas flows faster and slower in the rings of a bed of random packing, by 1 to 2 % (common
- * practice); a string shows that of its own place. One sigma of its deviation from its tube's mean.
- */
-const STRING_FLOW_SIGMA = 0.01;
 /** Relative load of a direction in which nothing was learned yet. */
 const USUAL_LOAD = 0.9;
 
@@ -48,17 +45,25 @@ const USUAL_LOAD = 0.9;
  *
  * Hours need f_s/k_discharge, from which the meter drops out; they rest on the rock and on the
  * machine. Priors are the classes of the instruments, `heat_capacity_sigma` and the spread of the
- * machine, whose errors in charging and discharging hang together (see machineSpread).
+ * machine, whose errors in charging and discharging hang together (see machineSpread). A store's heat
+ * balances, in place of its tubes once they tell more, share an error n_s: ln f_s + n_s is what they
+ * measure.
  *
  * @param load flow of the discharge asked about, over rated flow [-]
+ * @param chargeLoad the same of a charge; null: none is asked about
  */
-export function calibrate(model: UnitModel, state: UnitState, load: number): Calibration {
+export function calibrate(
+  model: UnitModel,
+  state: UnitState,
+  load: number,
+  chargeLoad: number | null = null,
+): Calibration {
   const spread = machineSpread(model.unit);
   const stores = model.stores.length;
   const travel = model.stores.map((store, s) => meanFlow(store, state.stores[s] as StoreState));
   const shown = travel.reduce((sum, f) => sum + f.log, 0) / stores;
   const sigmaC = model.unit.estimator.heat_capacity_sigma;
-  // b, slope, c_1 .. c_n, e_charge, e_discharge
+  // b, slope, c_1 .. c_n, e_charge, e_discharge, and what the balances of a store share: n_1 .. n_n
   const charge = 2 + stores;
   const discharge = charge + 1;
   const g = independent([
@@ -67,11 +72,12 @@ export function calibrate(model: UnitModel, state: UnitState, load: number): Cal
     ...model.stores.map(() => sigmaC ** 2),
     spread.variance.charge,
     spread.variance.discharge,
+    ...model.stores.map((store) => sharedSigma(store) ** 2),
   ]);
   (g.covariance[charge] as Float64Array)[discharge] = spread.covariance;
   (g.covariance[discharge] as Float64Array)[charge] = spread.covariance;
   const row = (entries: Readonly<Record<number, number>>): number[] =>
-    Array.from({ length: 4 + stores }, (_, i) => entries[i] ?? 0);
+    Array.from({ length: 4 + 2 * stores }, (_, i) => entries[i] ?? 0);
   const loadOf = (d: Direction): number => {
     const { flow_kg_s } = state.factors[d];
     return flow_kg_s > 0 ? flow_kg_s / spread.ratedFlow_kg_s : USUAL_LOAD;
@@ -84,11 +90,19 @@ export function calibrate(model: UnitModel, state: UnitState, load: number): Cal
       const run = state.balances[s]?.last[d] ?? null;
       return run === null ? [] : [{ d, ...run }];
     });
-    for (const { d, log, variance } of runs) {
-      observe(g, row({ 0: 1, 1: loadOf(d), [2 + s]: -1 }), log, variance);
+    // The tubes' factors come from the same thermometers: they count until a run has told more.
+    if (
+      runs.every(
+        (run) => varianceNow(run) + sharedSigma(model.stores[s] as StoreModel) ** 2 > f.variance,
+      )
+    ) {
+      observe(g, row({ 0: 1, 1: loadOf(last), [2 + s]: -1 }), f.log, f.variance);
+      return;
     }
-    if (runs.length > 0) return;
-    observe(g, row({ 0: 1, 1: loadOf(last), [2 + s]: -1 }), f.log, f.variance);
+    for (const run of runs) {
+      const entries = { 0: 1, 1: loadOf(run.d), [2 + s]: -1, [discharge + 1 + s]: 1 };
+      observe(g, row(entries), run.log, varianceNow(run));
+    }
   });
   for (const d of ['charge', 'discharge'] as const) {
     const { log, variance } = state.factors[d];
@@ -106,6 +120,7 @@ export function calibrate(model: UnitModel, state: UnitState, load: number): Cal
   const joint = transformed(g, [
     ...model.stores.map((_, s) => row({ 0: 1, 1: load, [2 + s]: -1 })),
     row({ 0: 1, 1: load, [discharge]: 1 }),
+    ...(chargeLoad === null ? [] : [row({ 0: 1, 1: chargeLoad, [charge]: 1 })]),
   ]);
   return {
     joint,

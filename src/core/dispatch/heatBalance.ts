@@ -2,11 +2,14 @@ import type { Direction } from '../definitions.js';
 import { referenceEnthalpies, type StoreEnergy } from '../track/storeEnergy.js';
 import { meanTemperatures, mixedOutlet } from '../track/storeEstimate.js';
 import type { StoreModel, StoreState } from '../track/storeTracker.js';
+import { lastingShare } from './lasting.js';
 
-/** ln of a ratio and its variance. */
+/** ln of a ratio and its variance when it was measured; see `varianceNow`. */
 export interface Measured {
   readonly log: number;
   readonly variance: number;
+  /** Time since [s]; absent in a state saved before it was counted = 0. */
+  age_s?: number;
 }
 
 /** Heat balance of a store over the present run in one direction, and what the last runs gave. */
@@ -15,6 +18,9 @@ export interface HeatBalance {
   /** State of charge at the run's start and its sigma. */
   soc: number;
   soc_sigma: number;
+  /** Of its variance, as far as strings see it: what lasts over the run, and what does not. */
+  lasting: number;
+  passing: number;
   /** Heat in the wall's steel then, and since what the metered gas has brought and what was lost [J]. */
   steel: number;
   metered: number;
@@ -28,6 +34,8 @@ export function startHeatBalance(): HeatBalance {
     direction: null,
     soc: 0,
     soc_sigma: 0,
+    lasting: 0,
+    passing: 0,
     steel: 0,
     metered: 0,
     lost: 0,
@@ -43,6 +51,17 @@ const SURER = 0.8;
 const LEFT_OUT = 0.004;
 /** Thermometers at the two ends: +/-1 K each. */
 const GAS_SIGMA_K = 0.7;
+/**
+ * Gas flows faster and slower in the rings of a bed of random packing, by 1 to 2 % (common
+ * practice); a string shows that of its own place. One sigma of its deviation from its tube's mean.
+ */
+export const STRING_FLOW_SIGMA = 0.01;
+/**
+ * Meter and rock move on: a meter fouls as a machine does, by one to two per cent in some weeks
+ * (common practice, no source), 0.1 % in an hour and 0.5 % in a day as a random walk; rock settles
+ * and breaks far more slowly.
+ */
+const WALK_PER_SQRT_H = 0.001;
 
 /** What one scan tells the balance of a store; `inlet_K` is that of the gas which enters it [K]. */
 export interface BalanceStep {
@@ -61,8 +80,13 @@ export interface BalanceStep {
  *   f = (E_full (soc_1 - soc_0) + what the wall's steel took + losses)/(integral of m cp (T_in - T_out) dt)
  *
  * is the travel per metered kilogram over that of the model, as the tubes' flow factors are: these
- * follow the last hour or so, the balance weighs the whole run. Its variance is that of the two
- * states of charge and of the gas temperatures.
+ * follow the last hour or so, the balance weighs the whole run. Its variance is that of the change
+ * of the state of charge at the strings: what lasts of its two errors (offsets, see `lastingShare`) is
+ * in both and counts by its difference, as for constants that a filter learns, cov(1, 0) = var(1),
+ *
+ *   var = (p_0 + p_1 + |l_0 - l_1|)/(soc_1 - soc_0)^2
+ *
+ * What all runs of a store have in common, the rings that no string sees among it, is `sharedSigma`.
  */
 export function stepHeatBalance(
   model: StoreModel,
@@ -72,12 +96,18 @@ export function stepHeatBalance(
   step: BalanceStep,
 ): void {
   const { direction } = step;
+  for (const last of Object.values(balance.last)) {
+    if (last !== null) last.age_s = (last.age_s ?? 0) + step.dt_s;
+  }
+  // A state saved before errors were told apart: the run begins anew.
+  if (!Number.isFinite(balance.passing)) balance.direction = null;
   const change = energy.soc - balance.soc;
   const surer = Math.abs(change) < LEAST_CHANGE && energy.soc_sigma < SURER * balance.soc_sigma;
   if (direction === null || direction !== balance.direction || surer) {
     balance.direction = direction;
     balance.soc = energy.soc;
     balance.soc_sigma = energy.soc_sigma;
+    if (direction !== null) Object.assign(balance, errorsOf(model, state, energy));
     balance.steel = steelOf(model, state);
     balance.metered = 0;
     balance.lost = 0;
@@ -96,12 +126,38 @@ export function stepHeatBalance(
   const beside = balance.lost + steelOf(model, state) - balance.steel;
   const ratio = (change * full_J + beside) / balance.metered;
   if (!(ratio > 0.2 && ratio < 5)) return;
-  const span = model.store.reference_hot_K - model.store.reference_cold_K;
+  const now = errorsOf(model, state, energy);
   const variance =
-    (energy.soc_sigma ** 2 + balance.soc_sigma ** 2) / change ** 2 +
-    (GAS_SIGMA_K / span) ** 2 +
-    LEFT_OUT ** 2;
-  balance.last[direction] = { log: Math.log(ratio), variance };
+    (balance.passing + now.passing + Math.abs(balance.lasting - now.lasting)) / change ** 2;
+  balance.last[direction] = { log: Math.log(ratio), variance, age_s: 0 };
+}
+
+/** The variance of the state of charge by how long its causes last. */
+function errorsOf(
+  model: StoreModel,
+  state: StoreState,
+  energy: StoreEnergy,
+): Pick<HeatBalance, 'lasting' | 'passing'> {
+  const seen = Math.max(0, energy.soc_sigma ** 2 - energy.unseen ** 2);
+  const lasting = seen * lastingShare(model, state);
+  return { lasting, passing: seen - lasting };
+}
+
+/**
+ * One sigma of what is the same in all balances of a store, charging or discharging, in ln: the gas
+ * thermometers at its ends, what the balance leaves out, and the flow at the strings' places, whose
+ * fronts lead or lag the store's mean by the same share of their way in either direction. No number
+ * of runs averages it away.
+ */
+export function sharedSigma(model: StoreModel): number {
+  const span = model.store.reference_hot_K - model.store.reference_cold_K;
+  const squares = model.tubes.reduce((sum, tube) => sum + tube.string.area_share ** 2, 0);
+  return Math.hypot(GAS_SIGMA_K / span, LEFT_OUT, STRING_FLOW_SIGMA * Math.sqrt(squares));
+}
+
+/** Variance of a balance today: as measured, and as meter and rock may have moved on since. */
+export function varianceNow(measured: Measured): number {
+  return measured.variance + (WALK_PER_SQRT_H ** 2 * (measured.age_s ?? 0)) / 3600;
 }
 
 /** Heat in the wall's steel [J] above 0 K, 0 where none is modelled. */

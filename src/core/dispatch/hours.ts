@@ -1,12 +1,14 @@
 import type { UnitDefinition } from '../definitions.js';
 import type { DispatchAnswer, EndCause, Quantiles } from '../estimate.js';
 import type { Machine } from '../machine/machine.js';
+import { referenceEnthalpies } from '../track/storeEnergy.js';
 import type { StoreModel, StoreState } from '../track/storeTracker.js';
+import type { TubeState } from '../track/tube.js';
 import { unseenSigma } from '../track/unseenFlow.js';
 import { earliestQuantiles } from './earliestQuantiles.js';
 import type { Gaussian } from './gaussian.js';
 import { addProfile } from './profileCovariance.js';
-import { BUMP_K, BUMPS, createRoller } from './roller.js';
+import { BUMP_K, BUMPS, createRoller, type Roller } from './roller.js';
 import { type RolloutResult, RULES, SWEEP_MOST_S } from './rollout.js';
 
 /** What hours are computed from. */
@@ -27,12 +29,10 @@ export interface HoursInput {
 
 const PROBE_LOG = 0.01;
 /**
- * What is the same in every run of a plant and so never averages out, relative: the rollout, off by
- * 0.2 % from the true state of the finer plant (rms over what is drawn there, by tools/hours.ts), and
- * what all heat balances of a store leave out alike (end steel, a fifth of the losses, the shape of
- * c(T)), 0.5 %.
+ * The rollout, off by 0.2 % from the true state of the finer plant (relative, rms over what is drawn
+ * there, by tools/hours.ts).
  */
-export const MODEL_SIGMA = 0.0055;
+export const MODEL_SIGMA = 0.002;
 const J_PER_MWH = 3.6e9;
 
 /**
@@ -80,7 +80,7 @@ export function computeHours(input: HoursInput, power_W: number): DispatchAnswer
     const flow = slope(roller.roll({ store: s, flow: PROBE_LOG }).times_s, PROBE_LOG);
     const better = roller.rollFine({ store: s, transfer: PROBE_LOG });
     const transfer = slope(better.times_s, PROBE_LOG, fine);
-    addUnseen(input, s, live, power_W, covariance);
+    addUnseen(input, s, perCharge(input, s, roller, live, base), covariance);
     const state = input.states[s] as StoreState;
     return addProfile(model, state, { bumps, flow, transfer }, covariance);
   });
@@ -116,26 +116,61 @@ function certain(result: RolloutResult, most_s: number): Quantiles {
 }
 
 /**
- * What flow that no string sees may do to a store's own rule: its sigma in state of charge, times
- * the time that a full store lasts at this power.
+ * What flow that no string sees may do to the rules: the front stands elsewhere, by its sigma in state
+ * of charge times what that changes.
  */
 function addUnseen(
   input: HoursInput,
   s: number,
-  live: readonly number[],
-  power_W: number,
+  slopes: readonly number[],
   covariance: readonly Float64Array[],
 ): void {
+  const sigma = unseenSigma(input.models[s] as StoreModel, input.states[s] as StoreState);
+  slopes.forEach((own, a) => {
+    slopes.forEach((other, b) => {
+      (covariance[a] as Float64Array)[b]! += sigma * sigma * own * other;
+    });
+  });
+}
+
+/** Of a store whose profile spans less than this share of its references there is no front to move. */
+const FRONT_SPAN = 0.3;
+
+/**
+ * What the rules' times change with a store's state of charge where its front stands elsewhere
+ * [s], by rule: from a rollout with the profile moved on by a cell. Where there is no front, a
+ * store's own outlet and the flow last as long as its heat does: tau/soc.
+ */
+function perCharge(
+  input: HoursInput,
+  s: number,
+  roller: Roller,
+  live: readonly number[],
+  base: RolloutResult,
+): number[] {
   const model = input.models[s] as StoreModel;
-  const own = model.store.kind === 'hot' ? 'hot_outlet' : 'cold_outlet';
-  const lasts_s = (input.unit.rated_hours * 3600 * input.unit.rated_power_W) / power_W;
-  const variance = (unseenSigma(model, input.states[s] as StoreState) * lasts_s) ** 2;
-  const touched = live.map((r) => RULES[r] === own || RULES[r] === 'flow');
-  for (let a = 0; a < live.length; a++) {
-    for (let b = 0; b < live.length; b++) {
-      if (touched[a] && touched[b]) (covariance[a] as Float64Array)[b]! += variance;
-    }
+  const { charged, discharged } = referenceEnthalpies(model);
+  let soc = 0;
+  let change = 0;
+  let cells = 1;
+  model.tubes.forEach((tube, k) => {
+    const { enthalpy } = (input.states[s] as StoreState).tubes[k] as TubeState;
+    const w = tube.string.area_share / (charged - discharged);
+    cells = enthalpy.length;
+    change += (w * ((enthalpy[0] as number) - (enthalpy[cells - 1] as number))) / cells;
+    for (const h of enthalpy) soc += (w * (h - discharged)) / cells;
+  });
+  if (change * cells > FRONT_SPAN) {
+    const { times_s } = roller.roll({ store: s, moved: true });
+    return live.map((r) => {
+      const t = times_s[r] as number;
+      return Number.isFinite(t) ? (t - (base.times_s[r] as number)) / change : 0;
+    });
   }
+  const own = model.store.kind === 'hot' ? 'hot_outlet' : 'cold_outlet';
+  return live.map((r) =>
+    (RULES[r] === own || RULES[r] === 'flow') && soc > 0 ? (base.times_s[r] as number) / soc : 0,
+  );
 }
 
 /** Only the central figure [s of discharge], for a state of charge between full answers. */

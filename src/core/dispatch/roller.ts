@@ -21,6 +21,8 @@ export const BUMP_K = 2;
 export interface Perturbation {
   readonly store?: number;
   readonly bump?: number;
+  /** The whole profile moved on by a cell, away from the end where a discharge leaves. */
+  readonly moved?: boolean;
   readonly flow?: number;
   readonly transfer?: number;
   readonly work?: number;
@@ -142,8 +144,9 @@ export function perturb(
       ...tube,
       flowFactor: tube.flowFactor * Math.exp(change.flow ?? 0),
       heatTransferFactor: tube.heatTransferFactor * Math.exp(change.transfer ?? 0),
-      enthalpy:
-        weights === null
+      enthalpy: change.moved
+        ? tube.enthalpy.map((_, i) => tube.enthalpy[Math.max(0, i - 1)] as number)
+        : weights === null
           ? tube.enthalpy
           : tube.enthalpy.map((h, i) =>
               enthalpyAt(

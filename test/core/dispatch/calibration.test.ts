@@ -1,7 +1,9 @@
 import { describe, expect, it } from 'vitest';
 import type { UnitDefinition } from '../../../src/core/definitions.js';
 import { type Calibration, calibrate } from '../../../src/core/dispatch/calibration.js';
+import { sharedSigma } from '../../../src/core/dispatch/heatBalance.js';
 import { machineSpread } from '../../../src/core/dispatch/machineSpread.js';
+import type { StoreModel } from '../../../src/core/track/storeTracker.js';
 import { startUnit } from '../../../src/core/unit.js';
 import { unitModel } from '../../../src/core/unitModel.js';
 import { demoUnit } from '../../support/truthRun.js';
@@ -20,6 +22,8 @@ interface Seen {
   /** ln of the learned machine factors, and their sigma. */
   readonly charge?: number;
   readonly discharge?: number;
+  /** Heat balances of the hot store in both directions: ln, variance and age [s]. */
+  readonly balance?: { readonly log: number; readonly variance: number; readonly age_s: number };
 }
 
 /** The calibration of a unit that has learned so much, at rated flow. */
@@ -49,6 +53,11 @@ function calibrated(unit: UnitDefinition, seen: Seen): Calibration {
       flow_kg_s: machineSpread(unit).ratedFlow_kg_s,
       age_s: direction === 'charge' ? 0 : 3600,
     });
+  }
+  const hot = state.balances[0];
+  if (seen.balance !== undefined && hot !== undefined) {
+    hot.last.charge = { ...seen.balance };
+    hot.last.discharge = { ...seen.balance };
   }
   return calibrate(model, state, 1);
 }
@@ -139,5 +148,34 @@ describe('the calibration of meter, rock and machine', () => {
         );
       }
     }
+  });
+
+  it('trusts a heat balance the less the older it is, and in the end the tubes more', () => {
+    const tubes = { travel: [0, 0], sigma: 0.02, charge: 0 } as const;
+    const day = 24 * 3600;
+    const aged = [0, 0.5, 1, 2, 1000].map((days) => {
+      const balance = { log: -0.03, variance: 0.004 ** 2, age_s: days * day };
+      return calibrated(known, { ...tubes, balance }).capacity[0];
+    });
+    const none = calibrated(known, tubes).capacity[0];
+    // Less rock than configured would travel faster: what it holds is found 3 % larger.
+    expect(aged[0]?.log).toBeGreaterThan(0.02);
+    for (let n = 1; n < aged.length; n++) {
+      expect(aged[n]?.log).toBeLessThan(aged[n - 1]?.log as number);
+      expect(aged[n]?.sigma).toBeGreaterThan(aged[n - 1]?.sigma as number);
+    }
+    // 0.1 % in an hour as a random walk: 15 % in a thousand days, so that nothing is left of it.
+    expect(aged[4]).toEqual(none);
+  });
+
+  it('does not take two runs of a store for two independent ones', () => {
+    const balance = { log: 0, variance: 1e-8, age_s: 0 };
+    const { capacity } = calibrated(known, { charge: 0, discharge: 0, balance });
+    const shared = sharedSigma(unitModel(known).stores[0] as StoreModel);
+    const prior = known.estimator.heat_capacity_sigma;
+    // Two exact runs: what they share is left, against the prior.
+    const least = 1 / Math.hypot(1 / shared, 1 / prior);
+    expect(capacity[0]?.sigma).toBeGreaterThan(0.99 * least);
+    expect(capacity[0]?.sigma).toBeLessThan(1.2 * least);
   });
 });

@@ -1,15 +1,18 @@
 import { describe, expect, it } from 'vitest';
 import {
+  type BalanceStep,
   type HeatBalance,
+  sharedSigma,
   startHeatBalance,
   stepHeatBalance,
+  varianceNow,
 } from '../../../src/core/dispatch/heatBalance.js';
 import {
   referenceEnthalpies,
   type StoreEnergy,
   storeEnergy,
 } from '../../../src/core/track/storeEnergy.js';
-import { startStore } from '../../../src/core/track/storeTracker.js';
+import { type StoreState, startStore } from '../../../src/core/track/storeTracker.js';
 import { setTubeTemperatures, type TubeState } from '../../../src/core/track/tube.js';
 import { resetWall } from '../../../src/core/track/wallZone.js';
 import { unitModel } from '../../../src/core/unitModel.js';
@@ -25,6 +28,10 @@ interface Run {
   readonly factor: number;
   readonly scans: number;
   readonly sigma?: (scan: number) => number;
+  /** Of the sigma, from flow that no string sees. */
+  readonly unseen?: number;
+  /** Changes the store's state before a scan. */
+  readonly before?: (state: StoreState, scan: number) => void;
   /** Above ambient, all of bed, wall and ends [K]. */
   readonly warmer_K?: number;
 }
@@ -54,7 +61,9 @@ function afterCharge(s: number, run: Run): HeatBalance {
   const balance = startHeatBalance();
   const like: StoreEnergy = storeEnergy(model, state);
   for (let n = 0; n <= run.scans; n++) {
-    const energy = { ...like, soc: 0.1 + n * perScan, soc_sigma: run.sigma?.(n) ?? 0.003 };
+    const soc_sigma = run.sigma?.(n) ?? 0.003;
+    const energy = { ...like, soc: 0.1 + n * perScan, soc_sigma, unseen: run.unseen ?? 0 };
+    run.before?.(state, n);
     stepHeatBalance(model, state, balance, energy, {
       direction: 'charge',
       flow_kg_s: FLOW,
@@ -117,5 +126,73 @@ describe('the heat balance of a store', () => {
     expect(balance.direction).toBeNull();
     expect(balance.metered).toBe(0);
     expect(balance.last.charge).toBe(found);
+  });
+
+  it('counts what no string sees to what all runs share, not to each', () => {
+    const seen = afterCharge(0, { factor: 1, scans: 300, sigma: () => 0.004 }).last.charge;
+    const sigma = () => Math.hypot(0.004, 0.01);
+    const both = afterCharge(0, { factor: 1, scans: 300, sigma, unseen: 0.01 }).last.charge;
+    expect(both?.variance).toBeCloseTo(seen?.variance as number, 12);
+    // Three strings share the cross-section: each is off by 1 % of its front's way.
+    const strings = (models[0] as (typeof models)[number]).tubes.map((t) => t.string.area_share);
+    expect(sharedSigma(models[0] as (typeof models)[number])).toBeGreaterThan(
+      0.01 * Math.hypot(...strings),
+    );
+  });
+
+  it('does not count an error that lasts over the run', () => {
+    // All that is uncertain is one offset, which every temperature follows: it is in both ends alike.
+    const offset = (state: StoreState): void => {
+      models[0]?.tubes.forEach((tube, k) => {
+        const { cells, size, offset: at } = tube.layout;
+        const p = (state.tubes[k] as TubeState).covariance.fill(0);
+        for (let i = 0; i <= cells; i++) {
+          for (let j = 0; j <= cells; j++) {
+            p[(i < cells ? i : at) * size + (j < cells ? j : at)] = 0.5;
+          }
+        }
+      });
+    };
+    const lasting = afterCharge(0, { factor: 1, scans: 300, before: offset }).last.charge;
+    const passing = afterCharge(0, { factor: 1, scans: 300 }).last.charge;
+    expect(passing?.variance).toBeGreaterThan(1e-5);
+    expect((lasting?.variance as number) / (passing?.variance as number)).toBeLessThan(1e-6);
+  });
+
+  it('loses weight with time, standing or running the other way', () => {
+    const balance = afterCharge(0, { factor: 1, scans: 300 });
+    const model = models[0] as (typeof models)[number];
+    const state = startStore(model);
+    const found = balance.last.charge;
+    if (found === null) throw new Error('nothing was found');
+    const fresh = varianceNow(found);
+    const standing = {
+      direction: null,
+      flow_kg_s: 0,
+      inlet_K: Number.NaN,
+      ambient_K: 283,
+      dt_s: 3600,
+    };
+    for (let h = 0; h < 100; h++) {
+      stepHeatBalance(model, state, balance, storeEnergy(model, state), standing);
+    }
+    // 0.1 % in an hour as a random walk: 1 % in a hundred.
+    expect(varianceNow(found) - fresh).toBeCloseTo(0.01 ** 2, 9);
+    expect(found.variance).toBe(fresh);
+  });
+
+  it('goes on from a state saved before ages and lasting errors were kept', () => {
+    const saved = startHeatBalance();
+    const { lasting: _, passing: __, ...old } = { ...saved, direction: 'charge' as const };
+    const kept = { log: 0.01, variance: 1e-4 };
+    const balance = { ...old, last: { charge: kept, discharge: null } } as unknown as HeatBalance;
+    const model = models[0] as (typeof models)[number];
+    const state = startStore(model);
+    const energy = storeEnergy(model, state);
+    const step = { direction: 'charge', flow_kg_s: FLOW, inlet_K: 720, ambient_K: 283, dt_s: DT_S };
+    stepHeatBalance(model, state, balance, energy, step as BalanceStep);
+    expect(balance.passing).toBeGreaterThanOrEqual(0);
+    expect(balance.lasting).toBeGreaterThanOrEqual(0);
+    expect(varianceNow(kept)).toBeCloseTo(1e-4 + (1e-6 * DT_S) / 3600, 12);
   });
 });
