@@ -58,7 +58,7 @@ function stand(
   if (!(dt > 0)) return;
   for (let n = 1; n <= parts; n++) {
     stepAhead(model, ahead, 'discharge', 0, none, dt, options.works);
-    options.each?.(from_s + n * dt, ahead);
+    options.each?.(from_s + n * dt, ahead, 0);
   }
 }
 

@@ -50,8 +50,8 @@ export interface MarchOptions {
   /** How far past its commanded end a run is followed for the rules' times [s]. */
   readonly beyond_s: number;
   readonly works: readonly (readonly BedWork[])[];
-  /** Called after each step: time, and the beds then. */
-  readonly each?: (t_s: number, ahead: BedsAhead) => void;
+  /** Called after each step: time, the beds then, and the metered flow of the step, at least 0 [kg/s]. */
+  readonly each?: (t_s: number, ahead: BedsAhead, flow_kg_s: number) => void;
 }
 
 /** Until the lids are swept a step is taken in so many parts. */
@@ -119,7 +119,7 @@ export function marchEpisode(
         power0_W: power0 * share,
         power1_W: power1 * share,
       });
-      options.each?.(run.t, ahead);
+      options.each?.(run.t, ahead, run.flow);
     }
   }
   const at = stopped ?? run.t;

@@ -32,6 +32,8 @@ export interface Outlook {
   marchFine(command: Command, change?: Change, options?: Partial<MarchOptions>): Course;
   /** The best there is, with the layers at the wall on half cells. */
   best(command: Command, options?: Partial<MarchOptions>): Course;
+  /** The beds and arrays of `best`, for marches that go on from where others ended. */
+  beds(): { readonly ahead: AheadModel; readonly options: MarchOptions };
 }
 
 const STEP_S = 300;
@@ -114,5 +116,9 @@ export function createOutlook(model: UnitModel, state: UnitState, load = 1): Out
       ),
     best: (command, options = {}) =>
       go(aheadOf(whole.map(refined), {}), command, FINE_STEP_S, fineWorks(), options),
+    beds: () => ({
+      ahead: aheadOf(whole.map(refined), {}),
+      options: { step_s: FINE_STEP_S, beyond_s: 0, works: fineWorks() },
+    }),
   };
 }
