@@ -42,7 +42,9 @@ function kindWords(schema: z.ZodType): string {
       ? `a block with any of the keys ${Object.keys(schema.shape).join(', ')}`
       : `a block with the keys ${required.join(', ')}`;
   }
-  if (schema instanceof z.ZodString) return noteOf(schema).form ?? 'a text';
+  if (schema instanceof z.ZodString || schema instanceof z.ZodStringFormat) {
+    return noteOf(schema).form ?? 'a text';
+  }
   const json = z.toJSONSchema(schema, { io: 'input', unrepresentable: 'any' }) as JsonNode;
   if (schema instanceof z.ZodArray) {
     const count = countWords(json.minItems, json.maxItems);

@@ -60,7 +60,7 @@ function resolveUnit(unit: UnitBlock): UnitDefinition {
     stores: unit.stores.map(resolveStore),
     channels: resolveChannels(unit),
     machine: resolveMachine(unit.machine),
-    limits: resolveLimits(unit.limits),
+    limits: resolveLimits(unit.limits, unit.machine.auxiliary_standing_kW * 1e3),
     estimator: resolveEstimator(unit),
     watch: resolveWatch(unit),
     hours_at_W: (unit.hours_at_MW_el ?? [unit.rated_power_MW_el]).map((power) => power * 1e6),

@@ -7,6 +7,7 @@ import type {
 } from '../core/definitions.js';
 import { ZERO_CELSIUS_K } from '../core/units.js';
 import { resolveFluid } from './resolveStore.js';
+import { resolveTrade } from './resolveTrade.js';
 import type { MachineBlock } from './schema/machine.js';
 import type { LimitsBlock } from './schema/operation.js';
 import type { UnitBlock } from './schema/site.js';
@@ -53,7 +54,7 @@ export function resolveMachine(block: MachineBlock): MachineDefinition {
   };
 }
 
-export function resolveLimits(block: LimitsBlock): LimitsDefinition {
+export function resolveLimits(block: LimitsBlock, standing_W: number): LimitsDefinition {
   const direction = (d: LimitsBlock['charge']): DirectionLimits => ({
     power_min_W: d.power_min_MW_el * 1e6,
     power_max_W: d.power_max_MW_el * 1e6,
@@ -64,6 +65,7 @@ export function resolveLimits(block: LimitsBlock): LimitsDefinition {
   return {
     charge: direction(block.charge),
     discharge: direction(block.discharge),
+    ...resolveTrade(block, standing_W),
     hot_outlet_min_K: kelvinOrNull(block.hot_outlet_min_degC),
     cold_outlet_max_K: kelvinOrNull(block.cold_outlet_max_degC),
     charge_hot_outlet_max_K: kelvinOrNull(block.charge_hot_outlet_max_degC),

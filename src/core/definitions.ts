@@ -243,6 +243,8 @@ export interface LimitsDefinition {
   /** Absent: no limit of the connection. */
   readonly connection?: ConnectionDefinition;
   readonly outages?: readonly OutageDefinition[];
+  /** Share of the time, outages aside, in which the machine runs when called; told, never reckoned in. */
+  readonly availability?: number;
   /** A discharge ends when the hot outlet falls below / the cold outlet rises above these [K]. */
   readonly hot_outlet_min_K: number | null;
   readonly cold_outlet_max_K: number | null;

@@ -2,9 +2,11 @@ import { channelTopic, expandString } from '../expand.js';
 import { type Path, pathText } from '../faults.js';
 import type { SiteBlock, UnitBlock } from '../schema/site.js';
 import { channelFaults } from './channels.js';
+import { connectionFaults } from './connection.js';
 import { type CrossFault, cross, repeated } from './cross.js';
 import { limitFaults } from './limits.js';
 import { machineFaults } from './machine.js';
+import { operationFaults } from './operation.js';
 import { storeFaults } from './store.js';
 
 /** Everything that no single key can tell: names used twice, values that contradict each other. */
@@ -39,6 +41,8 @@ function unitFaults(unit: UnitBlock, path: Path): CrossFault[] {
     ...channelFaults(unit, path),
     ...machineFaults(unit, path),
     ...limitFaults(unit, path),
+    ...operationFaults(unit, path),
+    ...connectionFaults(unit, path),
   ];
 }
 

@@ -23,8 +23,12 @@ export function key<T extends z.ZodType>(
 }
 
 /** A section or list: its keys carry the units, so it has a description only. */
-export function section<T extends z.ZodType>(schema: T, description: string): T {
-  return schema.meta({ description }) as T;
+export function section<T extends z.ZodType>(
+  schema: T,
+  description: string,
+  otherwise?: string,
+): T {
+  return schema.meta(otherwise === undefined ? { description } : { description, otherwise }) as T;
 }
 
 /**

@@ -1,5 +1,6 @@
 import { z } from 'zod';
 import { key, positive, section, share, temperature_degC } from './key.js';
+import { tradeLimits } from './trade.js';
 
 const direction = z.strictObject({
   power_min_MW_el: key(z.number().min(0).max(5000), 'MW_el', 'Smallest stable power.', 0.5).default(
@@ -27,6 +28,7 @@ export const limitsSchema = z.strictObject({
     5,
     'no such rule',
   ).optional(),
+  ...tradeLimits,
 });
 
 const sigma = (unit: string, most: number, what: string, usual: number) =>
