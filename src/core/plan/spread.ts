@@ -1,6 +1,7 @@
+import type { Direction } from '../definitions.js';
 import { cholesky } from '../dispatch/earliestQuantiles.js';
 import { MODEL_SIGMA } from '../dispatch/hours.js';
-import { addProfile } from '../dispatch/profileCovariance.js';
+import { addProfile, type StoreResponse } from '../dispatch/profileCovariance.js';
 import { BUMP_K, BUMPS } from '../dispatch/roller.js';
 import { RULES } from '../dispatch/rollout.js';
 import type { EndCause } from '../estimate.js';
@@ -35,6 +36,22 @@ const PROBE_AMBIENT_K = 2;
 /** Ambient temperature over the hours ahead against that of now [K]: common practice, no source. */
 const AMBIENT_SIGMA_K = 3;
 
+/** Marches of one command; see Outlook. */
+export interface Marches {
+  best(): Course;
+  march(change?: Change): Course;
+  marchFine(change?: Change): Course;
+}
+
+/** Slopes of every rule's time of a plan along what is uncertain. */
+export interface PlanResponse {
+  readonly stores: readonly StoreResponse[];
+  /** [s] per ln of the work per metered kilogram. */
+  readonly work: Readonly<Record<Direction, readonly number[]>>;
+  /** [s/K] */
+  readonly ambient: readonly number[];
+}
+
 /**
  * Times at which the stop rules of each run of a plan break, with their covariance: the gradient of
  * every time with respect to the profiles, the flow and transfer factors, the machine's work in both
@@ -42,46 +59,83 @@ const AMBIENT_SIGMA_K = 3;
  * sources of uncertainty these are).
  */
 export function spreadOf(outlook: Outlook, command: Command): PlanSpread {
-  const { model, state } = outlook;
-  const course = outlook.best(command);
-  const times = course.episodes.flatMap((episode, e) =>
+  const marches: Marches = {
+    best: () => outlook.best(command),
+    march: (change) => outlook.march(command, change),
+    marchFine: (change) => outlook.marchFine(command, change),
+  };
+  const course = marches.best();
+  const times = ruleTimes(course);
+  const response = responseOf(outlook.model, marches, times);
+  return { course, times, covariance: covarianceOf(outlook, command, course, times, response) };
+}
+
+/** The rules that break within the time looked ahead. */
+export function ruleTimes(course: Course): RuleTime[] {
+  return course.episodes.flatMap((episode, e) =>
     RULES.flatMap((cause, rule): RuleTime[] => {
       const time_s = episode.times_s[rule] as number;
       return Number.isFinite(time_s) ? [{ episode: e, rule, cause, time_s }] : [];
     }),
   );
-  const covariance = times.map(() => new Float64Array(times.length));
-  if (times.length === 0) return { course, times, covariance };
+}
+
+/** Slopes of the given times, from marches that differ in one thing each. */
+export function responseOf(
+  model: UnitModel,
+  marches: Marches,
+  times: readonly RuleTime[],
+): PlanResponse {
+  const none = times.map(() => 0);
+  if (times.length === 0) {
+    const stores = model.stores.map(() => ({
+      ...{ bumps: Array.from({ length: BUMPS }, () => none), flow: none, transfer: none },
+    }));
+    return { stores, work: { discharge: none, charge: none }, ambient: none };
+  }
   const at = (of: Course, q: RuleTime): number => of.episodes[q.episode]?.times_s[q.rule] as number;
-  const base = outlook.march(command);
+  const base = marches.march();
   const slope = (of: Course, from: Course, delta: number): number[] =>
     times.map((q) => {
       const change = (at(of, q) - at(from, q)) / delta;
       return Number.isFinite(change) ? change : 0;
     });
   const along = (change: Change, delta: number): number[] =>
-    slope(outlook.march(command, change), base, delta);
-  const fine = outlook.marchFine(command);
+    slope(marches.march(change), base, delta);
+  const fine = marches.marchFine();
+  const stores = model.stores.map((_, s) => ({
+    bumps: Array.from({ length: BUMPS }, (_, bump) => along({ store: s, bump }, BUMP_K)),
+    flow: along({ store: s, flow: PROBE_LOG }, PROBE_LOG),
+    transfer: slope(marches.marchFine({ store: s, transfer: PROBE_LOG }), fine, PROBE_LOG),
+  }));
+  const runs = new Set(base.episodes.map((episode) => episode.direction));
+  const work = (direction: Direction): number[] =>
+    runs.has(direction) ? along({ [direction]: PROBE_LOG }, PROBE_LOG) : none;
+  return {
+    stores,
+    work: { discharge: work('discharge'), charge: work('charge') },
+    ambient: along({ ambient_K: PROBE_AMBIENT_K }, PROBE_AMBIENT_K),
+  };
+}
+
+/** Covariance of the given times [s2], by their slopes. */
+export function covarianceOf(
+  outlook: Outlook,
+  command: Command,
+  course: Course,
+  times: readonly RuleTime[],
+  response: PlanResponse,
+): Float64Array[] {
+  const { model, state } = outlook;
+  const covariance = times.map(() => new Float64Array(times.length));
+  if (times.length === 0) return covariance;
+  const { work, ambient } = response;
   const factors = model.stores.map((store, s) => {
-    const bumps = Array.from({ length: BUMPS }, (_, bump) => along({ store: s, bump }, BUMP_K));
-    const flow = along({ store: s, flow: PROBE_LOG }, PROBE_LOG);
-    const better = outlook.marchFine(command, { store: s, transfer: PROBE_LOG });
-    const transfer = slope(better, fine, PROBE_LOG);
     addUnseen(model, state, s, course, times, command, covariance);
-    return addProfile(
-      store,
-      state.stores[s] as UnitState['stores'][number],
-      { bumps, flow, transfer },
-      covariance,
-    );
+    const own = state.stores[s] as UnitState['stores'][number];
+    return addProfile(store, own, response.stores[s] as StoreResponse, covariance);
   });
-  const runs = new Set(course.episodes.map((episode) => episode.direction));
-  for (const direction of ['discharge', 'charge'] as const) {
-    factors.push(
-      runs.has(direction) ? along({ [direction]: PROBE_LOG }, PROBE_LOG) : times.map(() => 0),
-    );
-  }
-  const ambient = along({ ambient_K: PROBE_AMBIENT_K }, PROBE_AMBIENT_K);
+  factors.push([...work.discharge], [...work.charge]);
   const length = (q: RuleTime): number => q.time_s - (course.episodes[q.episode]?.from_s as number);
   times.forEach((a, i) => {
     times.forEach((b, j) => {
@@ -95,7 +149,7 @@ export function spreadOf(outlook: Outlook, command: Command): PlanSpread {
       (covariance[i] as Float64Array)[j]! += sum;
     });
   });
-  return { course, times, covariance };
+  return covariance;
 }
 
 /** What flow that no string sees may do to a store's own rules; see computeHours. */
@@ -141,6 +195,14 @@ function powerAbout(command: Command, from_s: number, to_s: number): number {
   return time > 0 ? energy / time : 0;
 }
 
+/** When each run first breaks a rule, and which, at one point of the joint distribution per index. */
+export interface Breaks {
+  /** Per episode [s]; Infinity where nothing breaks within the time looked ahead. */
+  readonly first_s: readonly Float64Array[];
+  /** Index in `RULES`; -1 where nothing breaks. */
+  readonly rule: readonly Int8Array[];
+}
+
 /**
  * When each run first breaks a rule, over fixed points of the joint distribution.
  *
@@ -148,22 +210,31 @@ function powerAbout(command: Command, from_s: number, to_s: number): number {
  *   ahead; points of the same index belong together
  */
 export function firstBreaks(spread: PlanSpread): Float64Array[] {
-  const { times, covariance, course } = spread;
-  const breaks = course.episodes.map(() =>
+  return [...breaksOf(spread).first_s];
+}
+
+/** As `firstBreaks`, with the rules. */
+export function breaksOf({ times, covariance, course }: PlanSpread): Breaks {
+  const first_s = course.episodes.map(() =>
     new Float64Array(NORMAL_COUNT).fill(Number.POSITIVE_INFINITY),
   );
+  const rule = course.episodes.map(() => new Int8Array(NORMAL_COUNT).fill(-1));
   const factor = cholesky(covariance);
   const points = latinNormals(times.length);
   times.forEach((q, a) => {
-    const own = breaks[q.episode] as Float64Array;
+    const own = first_s[q.episode] as Float64Array;
+    const which = rule[q.episode] as Int8Array;
     const from_s = course.episodes[q.episode]?.from_s as number;
     for (let k = 0; k < NORMAL_COUNT; k++) {
       let value = q.time_s;
       for (let b = 0; b <= a; b++) {
         value += (factor[a]?.[b] as number) * (points[b]?.[k] as number);
       }
-      own[k] = Math.min(own[k] as number, Math.max(from_s, value));
+      value = Math.max(from_s, value);
+      if (!(value < (own[k] as number))) continue;
+      own[k] = value;
+      which[k] = q.rule;
     }
   });
-  return breaks;
+  return { first_s, rule };
 }
