@@ -6,6 +6,7 @@ import type { DispatchAnswer, Estimate, ProfileView } from './estimate.js';
 import type { Scan } from './scan/scan.js';
 import type { ScanCounts } from './scanCounts.js';
 import { startConditions } from './track/conditions.js';
+import { startGasMemories } from './track/gasDoubts.js';
 import { type StoreState, startStore } from './track/storeTracker.js';
 import { startViews } from './track/storeViews.js';
 import type { TubeState } from './track/tube.js';
@@ -55,6 +56,7 @@ export function startUnit(unit: UnitDefinition): UnitState {
     views: model.stores.map(startViews),
     factors: { charge: startMachineFactor(), discharge: startMachineFactor() },
     balances: model.stores.map(startHeatBalance),
+    gas: model.stores.map(startGasMemories),
     watch: startWatch(),
     seen_ms: null,
     mode: 'stand',
@@ -152,7 +154,9 @@ export function restoreUnit(unit: UnitDefinition, snapshot: UnitSnapshot): UnitS
       requireShape(own, 'elements of covariance', tube.covariance.length, layout.size ** 2);
     });
   });
-  return structuredClone(snapshot.state);
+  // One saved before inlet gas was looked at has nothing of it.
+  const saved: Omit<UnitState, 'gas'> & Partial<UnitState> = structuredClone(snapshot.state);
+  return { ...saved, gas: saved.gas ?? model.stores.map(startGasMemories) };
 }
 
 function requireShape(of: string, what: string, found: number | undefined, expected: number): void {

@@ -1,6 +1,7 @@
 import { hoursOf, stateOfCharge } from './dispatch/unitHours.js';
 import type { Estimate, ProfileView, Quality, StoreEstimate } from './estimate.js';
 import { countThermocouples, type ScanCounts } from './scanCounts.js';
+import { type GasDoubt, gasDoubts } from './track/gasDoubts.js';
 import { implausibleReadings } from './track/plausible.js';
 import { estimateStore, profileOf } from './track/storeEstimate.js';
 import type { StoreState } from './track/storeTracker.js';
@@ -31,13 +32,14 @@ export function describe(model: UnitModel, state: UnitState, taken: Taken, ask: 
       energy,
     });
   });
+  const gas = gasDoubts(model, state.gas);
   const time = new Date(scan.time_ms).toISOString();
   const estimate: Estimate = {
     time,
     unit: unit.id,
     revision: 0,
     mode: taken.conditions.mode,
-    quality: qualityOf(model, state, taken),
+    quality: qualityOf(model, state, taken, gas),
     state_of_charge: stateOfCharge(
       model,
       state,
@@ -69,6 +71,7 @@ export function describe(model: UnitModel, state: UnitState, taken: Taken, ask: 
     estimate,
     spread,
     readingsSeen: taken.readings,
+    gas,
   });
   return { estimate, profile, events, counts: countsOf(model, state, taken) };
 }
@@ -90,7 +93,12 @@ function countsOf(model: UnitModel, state: UnitState, taken: Taken): ScanCounts 
 const BLIND_SIGMA = 0.25;
 const GOOD_SIGMA = 0.05;
 
-function qualityOf(model: UnitModel, state: UnitState, taken: Taken): Quality {
+function qualityOf(
+  model: UnitModel,
+  state: UnitState,
+  taken: Taken,
+  gas: readonly GasDoubt[],
+): Quality {
   const age_s = state.seen_ms === null ? Infinity : (taken.scan.time_ms - state.seen_ms) / 1000;
   if (age_s > model.unit.watch.data_age_s.limit) return 'stale';
   if (taken.stores.some(({ step }) => step === 'missed' || step === 'not_started')) return 'blind';
@@ -100,6 +108,7 @@ function qualityOf(model: UnitModel, state: UnitState, taken: Taken): Quality {
   const sigma = Math.max(...taken.stores.map(({ energy }) => energy.soc_sigma));
   if (sigma > BLIND_SIGMA) return 'blind';
   if (sigma > GOOD_SIGMA) return 'degraded';
+  if (gas.some(({ doubtful }) => doubtful)) return 'degraded';
   if (taken.implausible.length > 0 || taken.conditions.flowStandIn) return 'degraded';
   if (!taken.conditions.flowKnown || used < 0.6 * model.thermocouples.length || !settled) {
     return 'degraded';

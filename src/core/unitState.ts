@@ -3,6 +3,7 @@ import type { HeatBalance } from './dispatch/heatBalance.js';
 import type { MachineFactor } from './dispatch/machineFactor.js';
 import type { ChargeState } from './dispatch/unitHours.js';
 import type { ConditionsState } from './track/conditions.js';
+import type { GasMemories } from './track/gasDoubts.js';
 import type { StoreState } from './track/storeTracker.js';
 import type { StoreViews } from './track/storeViews.js';
 import type { WatchState } from './watch/watch.js';
@@ -18,6 +19,8 @@ export interface UnitState {
   readonly factors: Record<Direction, MachineFactor>;
   /** Heat balance of each store. */
   readonly balances: HeatBalance[];
+  /** Inlet gas of each store, held against its rock. */
+  readonly gas: GasMemories[];
   readonly watch: WatchState;
   /** Source time of the last scan with any thermocouple reading. */
   seen_ms: number | null;

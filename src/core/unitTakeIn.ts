@@ -6,6 +6,7 @@ import type { Scan } from './scan/scan.js';
 import { type Conditions, readConditions, startConditions } from './track/conditions.js';
 import { driveOf, storeOutlets, unknownTravel } from './track/drive.js';
 import type { FrontViewStep } from './track/frontView.js';
+import { followGas, type GasMemories, startGasMemories } from './track/gasDoubts.js';
 import { withoutImplausible } from './track/plausible.js';
 import { type StoreEnergy, storeEnergy } from './track/storeEnergy.js';
 import { storeFronts } from './track/storeEstimate.js';
@@ -48,6 +49,7 @@ export function forget(model: UnitModel, state: UnitState): void {
     state.views[s] = startViews(store);
     state.unknownTravel_m[s] = 0;
     state.balances[s] = startHeatBalance();
+    state.gas[s] = startGasMemories();
   });
   // Only counted: what the bed was taken for does not hang on it.
   const { disagreements } = state.conditions;
@@ -108,6 +110,8 @@ export function takeIn(model: UnitModel, state: UnitState, raw: Scan): Taken {
       ambient_K: conditions.ambient_K,
       dt_s,
     });
+    const gas = state.gas[s] as GasMemories;
+    followGas(model, s, storeState, gas, scan, conditions, dt_s, outlets);
     const views = stepViews(
       store,
       storeState,

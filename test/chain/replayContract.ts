@@ -32,7 +32,7 @@ const VERDICTS = 'open burst stuck drifting offset reversed outlier group_fault 
 );
 const KINDS = (
   'front_spread sensor_rejected data_stale outlet_near_limit front_view_disagrees ' +
-  'database_unreachable'
+  'gas_temperature_off database_unreachable'
 ).split(' ');
 
 const store = z.strictObject({

@@ -5,6 +5,7 @@ export const EVENT_KINDS = [
   'data_stale',
   'outlet_near_limit',
   'front_view_disagrees',
+  'gas_temperature_off',
   'database_unreachable',
 ] as const;
 export type EventKind = (typeof EVENT_KINDS)[number];

@@ -17,6 +17,7 @@ export const KIND_CLASSES: Readonly<
   data_stale: { class: 'alert', priority: 'high' },
   front_spread: { class: 'alert', priority: 'medium' },
   database_unreachable: { class: 'alert', priority: 'medium' },
+  gas_temperature_off: { class: 'alert', priority: 'medium' },
   front_view_disagrees: { class: 'alert', priority: 'low' },
   sensor_rejected: { class: 'alert', priority: 'low' },
 };

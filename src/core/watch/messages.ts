@@ -1,5 +1,6 @@
 import type { StoreKind } from '../definitions.js';
 import type { RejectedSensor, SensorVerdict } from '../estimate.js';
+import type { GasDoubt } from '../track/gasDoubts.js';
 
 /** Sentences for a tired person: what is the case, by how much, what it means, what to look at. */
 
@@ -129,6 +130,22 @@ export function viewRaised(store: string, string: string, sigmas: number, limit:
 
 export function viewReturned(store: string, string: string): string {
   return `Store ${store}, string ${string}: fitted front and bed model agree again, or the front has left the string.`;
+}
+
+export function gasRaised({ channel, store, end, off_K, rock_K }: GasDoubt): string {
+  const [inlet, way] =
+    end === 'charge_inlet' ? ['charge', 'charging'] : ['discharge', 'discharging'];
+  return (
+    `Gas temperature ${channel} at the ${inlet} inlet of store ${store} reads ` +
+    `${Math.abs(off_K).toFixed(0)} K ${off_K > 0 ? 'more' : 'less'} than the rock behind it, at ` +
+    `${degC(rock_K)} by thermocouples that agree, through which its gas has long flowed. Whatever it ` +
+    `is off by goes into the estimate as heat while ${way}. Look at this sensor, its transmitter and ` +
+    'its range, and at whether gas flows as metered.'
+  );
+}
+
+export function gasReturned({ channel, store }: GasDoubt): string {
+  return `Gas temperature ${channel} of store ${store} agrees with the rock behind it again, or it is looked at anew.`;
 }
 
 export function databaseRaised(service: string, down_s: number, detail: string): string {

@@ -1,5 +1,6 @@
 import type { Mode, StoreDefinition, UnitDefinition } from '../definitions.js';
 import type { Estimate, StoreEstimate } from '../estimate.js';
+import type { GasDoubt } from '../track/gasDoubts.js';
 import {
   type ConditionState,
   type ConditionTiming,
@@ -26,6 +27,8 @@ export interface WatchInput {
   readonly spread: Readonly<Record<string, Spread>>;
   /** How many readings this scan brought, of any channel. */
   readonly readingsSeen: number;
+  /** What is known of the gas-temperature channels; absent: nothing. */
+  readonly gas?: readonly GasDoubt[];
 }
 
 /** Plain and bounded: at most one entry per kind and subject of the unit. */
@@ -37,6 +40,7 @@ export interface WatchState {
 
 /** Front view and tubes disagree beyond this many sigmas of their difference... */
 const DISAGREEMENT = { limit: 3, deadband: 1, on_delay_s: 900, off_delay_s: 900 };
+const AT_ONCE = { on_delay_s: 0, off_delay_s: 0 };
 /** A spread counts as evidence where the ratio less this many sigmas is above the limit. */
 const SPREAD_SIGMAS = 2;
 /** So many rejected sensors of one store are one event: this share of them, and at least so many. */
@@ -86,6 +90,7 @@ export function stepWatch(
     watchOutlet(unit, store, estimate, input.mode, step);
     watchViews(store, estimate, step);
   }
+  watchGas(input, step);
   return events;
 }
 
@@ -194,6 +199,16 @@ function watchOutlet(
       ? say.outletRaised(store.id, store.kind, outlet, stop)
       : say.outletReturned(store.id),
   );
+}
+
+/** Found after long flow and ended likewise, so that nothing is left to wait for. */
+function watchGas({ gas = [] }: WatchInput, step: Step): void {
+  for (const one of gas) {
+    const evidence = one.doubtful ? 'active' : 'clear';
+    step('gas_temperature_off', one.channel, evidence, AT_ONCE, one.off_K, one.limit_K, (raised) =>
+      raised ? say.gasRaised(one) : say.gasReturned(one),
+    );
+  }
 }
 
 /** A view that only predicts says nothing; a string without a front has nothing to disagree on. */
