@@ -15,16 +15,17 @@ const REFERENCE_SHARE = 0.03;
 export function notesOf(
   unit: UnitDefinition,
   machine: Machine,
-  facts: Omit<UnitFacts, 'missing' | 'notes'>,
+  facts: Omit<UnitFacts, 'missing' | 'missing_limits' | 'notes'>,
 ): string[] {
   return [
     ...ratedNotes(facts),
     ...capNotes(unit, machine),
+    ...startNotes(unit),
     ...unit.stores.flatMap((store, s) => storeNotes(unit, store, facts, s)),
   ];
 }
 
-function ratedNotes(facts: Omit<UnitFacts, 'missing' | 'notes'>): string[] {
+function ratedNotes(facts: Omit<UnitFacts, 'missing' | 'missing_limits' | 'notes'>): string[] {
   const notes: string[] = [];
   const { discharge, charge } = facts.cycle;
   if (facts.discharge.flow_kg_s === null) {
@@ -58,12 +59,28 @@ function capNotes(unit: UnitDefinition, machine: Machine): string[] {
   ];
 }
 
+/** A start that draws more than a window lets in cannot be made while that is open. */
+function startNotes(unit: UnitDefinition): string[] {
+  const { operation, connection } = unit.limits;
+  if (operation === undefined || connection === undefined) return [];
+  return (['warm', 'cold'] as const).flatMap((kind) => {
+    const { time_s, energy_J } = operation.start[kind];
+    const draw_W = time_s > 0 ? energy_J / time_s : 0;
+    const narrow = connection.windows.filter((window) => window.import_max_W < draw_W);
+    if (narrow.length === 0) return [];
+    const least = Math.min(...narrow.map((window) => window.import_max_W));
+    return [
+      `a ${kind} start draws ${(draw_W / 1e6).toFixed(3)} MW_el, more than ${narrow.length === 1 ? 'a window' : 'some windows'} of the connection let in (${(least / 1e6).toFixed(3)} MW_el)`,
+    ];
+  });
+}
+
 const degC = (kelvin: number) => `${(kelvin - ZERO_CELSIUS_K).toFixed(0)} degC`;
 
 function storeNotes(
   unit: UnitDefinition,
   store: UnitDefinition['stores'][number],
-  facts: Omit<UnitFacts, 'missing' | 'notes'>,
+  facts: Omit<UnitFacts, 'missing' | 'missing_limits' | 'notes'>,
   s: number,
 ): string[] {
   const f = facts.stores[s]!;

@@ -1,5 +1,6 @@
 import type { SiteConfig } from '../../config/site.js';
 import type { HalfCycle, HalfEnd } from '../../core/cycle/settledCycle.js';
+import type { DirectionLimitFacts } from './limitFacts.js';
 import { siteNotes } from './siteNotes.js';
 import type { StoreFacts } from './storeFacts.js';
 import type { DirectionFacts, UnitFacts } from './unitFacts.js';
@@ -26,8 +27,10 @@ function unitText(unit: UnitFacts): string {
     heading(unit.name === unit.id ? `Unit ${unit.id}` : `Unit ${unit.id}: ${unit.name}`),
     machineText(unit),
     hoursText(unit),
+    limitsText(unit),
     storesText(unit.stores),
     missingText(unit),
+    missingLimitsText(unit),
     notesText(unit.notes),
   ];
   return parts.filter((part) => part !== '').join('\n\n');
@@ -117,6 +120,41 @@ function hoursText(unit: UnitFacts): string {
   ].join('\n');
 }
 
+function limitsText(unit: UnitFacts): string {
+  const { charge, discharge, cold_after_h, standing_MWh_el_d, time_zone } = unit.limits;
+  const row = (
+    label: string,
+    unit: string,
+    pick: (d: DirectionLimitFacts) => number | null,
+  ): Row => [label, unit, figure(pick(charge)), figure(pick(discharge))];
+  const cold = cold_after_h === null ? '' : `, stood ${figure(cold_after_h)} h`;
+  const body: Row[] = [
+    row('Least power', 'MW_el', (d) => d.power_min_MW_el),
+    row('Greatest power', 'MW_el', (d) => d.power_max_MW_el),
+    row('Command to power, warm', 'min', (d) => d.from_warm_min),
+    row(`Command to power, cold${cold}`, 'min', (d) => d.from_cold_min),
+    row('Command to power, out of the other', 'min', (d) => d.from_other_direction_min),
+    row('Power to none', 'min', (d) => d.ramp_down_min),
+    row('First hour lacks, warm', 'MWh_el', (d) => d.first_hour_lacks_warm_MWh_el),
+    row('First hour lacks, cold', 'MWh_el', (d) => d.first_hour_lacks_cold_MWh_el),
+    row('Connected for that power', 'h/d', (d) => d.connected_h_d),
+  ];
+  const told = [
+    `Standing draws ${figure(standing_MWh_el_d)} MWh_el a day`,
+    time_zone === null ? 'blocks begin by UTC' : `blocks begin by the clocks of ${time_zone}`,
+    unit.limits.outages === 0 ? 'no outage planned' : count(unit.limits.outages, 'outage'),
+    ...(unit.limits.availability === null
+      ? []
+      : [`available ${figure(100 * unit.limits.availability)} % of the time`]),
+  ];
+  const powers = `${figure(unit.charge.power_MW_el)} and ${figure(unit.discharge.power_MW_el)} MW_el`;
+  return [
+    `Limits of what can be sold, at the powers of the cycle (${powers})`,
+    rows(['charge', 'discharge'], body),
+    ...wrap(`${told.join('; ')}.`, 0),
+  ].join('\n');
+}
+
 function storesText(stores: readonly StoreFacts[]): string {
   const each = (label: string, unit: string, pick: (s: StoreFacts) => string): Row => [
     label,
@@ -176,6 +214,16 @@ function missingText(unit: UnitFacts): string {
     ...wrap(`costs: ${m.costs}`, 4),
   ]);
   return `Channels that are not there\n${lines.join('\n')}`;
+}
+
+function missingLimitsText(unit: UnitFacts): string {
+  if (unit.missing_limits.length === 0) return '';
+  const lines = unit.missing_limits.flatMap((m) => [
+    `  ${m.limit}`,
+    ...wrap(`instead: ${m.stands_in}`, 4),
+    ...wrap(`costs: ${m.costs}`, 4),
+  ]);
+  return `Limits that are not there\n${lines.join('\n')}`;
 }
 
 function notesText(notes: readonly string[]): string {

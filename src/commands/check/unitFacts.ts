@@ -2,7 +2,9 @@ import { cyclePower_W, type SettledCycle, settledCycle } from '../../core/cycle/
 import type { Direction, StoreDefinition, UnitDefinition } from '../../core/definitions.js';
 import { createMachine, type Machine } from '../../core/machine/machine.js';
 import { ZERO_CELSIUS_K } from '../../core/units.js';
+import { type LimitFacts, limitFacts } from './limitFacts.js';
 import { type MissingChannel, missingChannels } from './missing.js';
+import { type MissingLimit, missingLimits } from './missingLimits.js';
 import { notesOf } from './notes.js';
 import { referenceOutlets } from './referenceOutlets.js';
 import { type StoreFacts, storeFacts } from './storeFacts.js';
@@ -31,7 +33,10 @@ export interface UnitFacts {
   readonly cycle: SettledCycle;
   readonly round_trip: number;
   readonly stores: readonly StoreFacts[];
+  /** What ramps, start-ups and connection make of the powers. */
+  readonly limits: LimitFacts;
   readonly missing: readonly MissingChannel[];
+  readonly missing_limits: readonly MissingLimit[];
   /** What a person should look at; not faults. */
   readonly notes: readonly string[];
 }
@@ -57,10 +62,12 @@ export function unitFacts(unit: UnitDefinition): UnitFacts {
     cycle,
     round_trip: cycle.discharge.energy_MWh_el / cycle.charge.energy_MWh_el,
     stores,
+    limits: limitFacts(unit),
   };
   return {
     ...facts,
     missing: missingChannels(unit, machine),
+    missing_limits: missingLimits(unit),
     notes: notesOf(unit, machine, facts),
   };
 }
