@@ -42,6 +42,17 @@ export interface Episode {
   readonly stopped_s: number | null;
   /** From when on it gave or took less than commanded, at its greatest flow; null = never. */
   readonly derated_s: number | null;
+  /**
+   * What the greatest flow gives of the commanded power from `times_s[2]` on, step by step, past a
+   * stop and past the commanded end too; empty where that flow is never needed.
+   */
+  readonly shares: readonly DeratedShare[];
+}
+
+export interface DeratedShare {
+  readonly t_s: number;
+  /** [-], 0 to 1. */
+  readonly share: number;
 }
 
 /** How a march is made. */
@@ -50,6 +61,10 @@ export interface MarchOptions {
   /** How far past its commanded end a run is followed for the rules' times [s]. */
   readonly beyond_s: number;
   readonly works: readonly (readonly BedWork[])[];
+  /** Where another march ended, to go on from; absent = the present. See `CourseEnd`. */
+  readonly from?: CourseEnd;
+  /** Nothing is asked of what follows a stop of the last run: it is not marched. */
+  readonly open?: boolean;
   /** Called after each step: time, the beds then, and the metered flow of the step, at least 0 [kg/s]. */
   readonly each?: (t_s: number, ahead: BedsAhead, flow_kg_s: number) => void;
 }
@@ -61,8 +76,20 @@ const FOLLOW = 0.15;
 /** A derated unit stops below this share of the commanded power where no least power is set. */
 const LEAST_SHARE = 0.02;
 
+/** Where a march ended: the beds, and the run that its end cut through. */
+export interface CourseEnd {
+  readonly end: BedsAhead;
+  readonly running: Running | null;
+}
+
+/** A run that may go on: what it remembers, and whether a rule has stopped it. */
+export interface Running {
+  readonly run: Run;
+  readonly stopped: boolean;
+}
+
 /** What a run remembers from step to step. */
-interface Run {
+export interface Run {
   readonly direction: Direction;
   readonly from_s: number;
   t: number;
@@ -73,6 +100,7 @@ interface Run {
   flow: number;
   first: number;
   derated: number | null;
+  readonly shares: DeratedShare[];
   readonly times: Float64Array;
   readonly before: Float64Array;
   readonly beforeAt: Float64Array;
@@ -88,18 +116,21 @@ interface Run {
  * the commanded end, copies of the beds go on so that every rule has a time.
  *
  * @param pieces ramps and runs of one direction, one after the other
- * @returns the run, and what was delivered
+ * @param going a run of this direction that was cut where `pieces` begin, to go on with as if it had
+ *   not been; it is left as it is
+ * @returns the run, what was delivered, and what the run remembers at its end
  */
 export function marchEpisode(
   model: AheadModel,
   ahead: BedsAhead,
   pieces: readonly Piece[],
   options: MarchOptions,
-): { episode: Episode; delivered: Delivered[] } {
+  going: Run | null = null,
+): { episode: Episode; delivered: Delivered[]; running: Running } {
   const first = pieces[0] as Piece;
   const last = pieces[pieces.length - 1] as Piece;
   const direction = first.mode as Direction;
-  const run = startRun(model, ahead, direction, first.from_s);
+  const run = going === null ? startRun(model, ahead, direction, first.from_s) : copyRun(going);
   const delivered: Delivered[] = [];
   let stopped: number | null = null;
   for (const piece of pieces) {
@@ -123,6 +154,7 @@ export function marchEpisode(
     }
   }
   const at = stopped ?? run.t;
+  const running = { run: copyRun(run), stopped: stopped !== null };
   const on = copyAhead(ahead);
   const power = Math.abs(stopped === null ? last.power1_W : powerAt(pieceAt(pieces, at), at));
   const until = stopped === null ? run.t + options.beyond_s : Number.POSITIVE_INFINITY;
@@ -144,8 +176,10 @@ export function marchEpisode(
       first_s: best,
       ends_by: cause,
       stopped_s: stopped,
-      derated_s: run.derated,
+      derated_s: running.run.derated,
+      shares: run.shares,
     },
+    running,
     delivered: stopped === null ? delivered : cutAt(delivered, stopped),
   };
 }
@@ -165,9 +199,22 @@ function startRun(model: AheadModel, ahead: BedsAhead, direction: Direction, fro
     flow: 0,
     first: Number.POSITIVE_INFINITY,
     derated: null,
+    shares: [],
     times: new Float64Array(RULES.length).fill(Number.POSITIVE_INFINITY),
     before: new Float64Array(RULES.length).fill(Number.NaN),
     beforeAt: new Float64Array(RULES.length),
+  };
+}
+
+function copyRun(run: Run): Run {
+  return {
+    ...run,
+    sweptMass: [...run.sweptMass],
+    lags: [...run.lags],
+    shares: [...run.shares],
+    times: run.times.slice(),
+    before: run.before.slice(),
+    beforeAt: run.beforeAt.slice(),
   };
 }
 
@@ -215,6 +262,9 @@ function stepRun(
   const stops = [0, 1, 3, 4].map((r) => run.times[r] as number);
   const stop = Math.min(...stops, tooLittle && run.swept ? t : Number.POSITIVE_INFINITY);
   if (!goOn && stop <= t) return { stopped_s: Math.max(run.from_s, stop), share: 0 };
+  if (run.swept && needed > most && power_W > 0) {
+    run.shares.push({ t_s: t, share: Math.min(1, greatest / power_W) });
+  }
   if (run.swept && needed > most) run.derated ??= Math.max(run.from_s, run.times[2] as number);
   // The flow of a step is that of its middle, by a straight line through the last two.
   const mean = run.lags.reduce((sum, lag) => sum + lag, 0) / run.lags.length;
