@@ -147,6 +147,21 @@ export function enthalpyAt(tables: BedTables, temperature_K: number): number {
   return tables.dH * (s + (temperature_K - t0) / ((nodes[s + 1] as number) - t0));
 }
 
+/** The same, searched from the segment of an enthalpy nearby. */
+export function enthalpyNear(
+  tables: BedTables,
+  temperature_K: number,
+  nearby_J_m3: number,
+): number {
+  const nodes = tables.temperature_K;
+  const last = tables.segments - 1;
+  let s = segmentOf(tables, nearby_J_m3);
+  while (s < last && temperature_K >= (nodes[s + 1] as number)) s++;
+  while (s > 0 && temperature_K < (nodes[s] as number)) s--;
+  const t0 = nodes[s] as number;
+  return tables.dH * (s + (temperature_K - t0) / ((nodes[s + 1] as number) - t0));
+}
+
 /** Fluid enthalpy [J/kg] at a fluid temperature [K], consistent with the tables. */
 export function fluidEnthalpyAt(tables: BedTables, temperature_K: number): number {
   const s = bracket(tables.temperature_K, temperature_K);

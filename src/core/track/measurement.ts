@@ -1,4 +1,4 @@
-import { temperatureAt } from '../bed/tables.js';
+import { enthalpyNear, temperatureAt } from '../bed/tables.js';
 import type { TubeModel, TubeState } from './tube.js';
 
 /**
@@ -179,12 +179,30 @@ function forwardSolve(
   for (let a = 0; a < m; a++) {
     const row = w.subarray(a * size, (a + 1) * size);
     row.set((accepted[a] as AcceptedReading).v);
-    for (let b = 0; b < a; b++) {
+    let b = 0;
+    // Four rows at a time: what is left of this one is read and written once for all four.
+    for (; b + 4 <= a; b += 4) {
+      const l0 = factor[a * m + b] as number;
+      const l1 = factor[a * m + b + 1] as number;
+      const l2 = factor[a * m + b + 2] as number;
+      const l3 = factor[a * m + b + 3] as number;
+      const r0 = b * size;
+      const r1 = r0 + size;
+      const r2 = r1 + size;
+      const r3 = r2 + size;
+      for (let i = 0; i < size; i++) {
+        row[i] =
+          (row[i] as number) -
+          l0 * (w[r0 + i] as number) -
+          l1 * (w[r1 + i] as number) -
+          l2 * (w[r2 + i] as number) -
+          l3 * (w[r3 + i] as number);
+      }
+    }
+    for (; b < a; b++) {
       const l = factor[a * m + b] as number;
       const other = b * size;
-      for (let i = 0; i < size; i++) {
-        row[i] = (row[i] as number) - l * (w[other + i] as number);
-      }
+      for (let i = 0; i < size; i++) row[i] = (row[i] as number) - l * (w[other + i] as number);
     }
     const own = factor[a * m + a] as number;
     for (let i = 0; i < size; i++) row[i] = (row[i] as number) / own;
@@ -266,12 +284,28 @@ function subtractOuter(p: Float64Array, w: Float64Array, size: number, m: number
 
 /** Lower Cholesky factor of S = H P H' + R, row-major m x m. */
 function innovationFactor(model: TubeModel, accepted: readonly AcceptedReading[]): Float64Array {
+  const { layout } = model;
   const m = accepted.length;
   const s = new Float64Array(m * m);
   for (let a = 0; a < m; a++) {
     const { sensor, reading, variance_K2 } = accepted[a] as AcceptedReading;
+    // As `observe`, its places looked up once for all of the row.
+    const { cell, slope_K_m: slope } = reading;
+    const wA = 1 - reading.weight;
+    const wB = reading.weight;
+    const wShare = reading.lag_m * slope;
+    const position = layout.position + sensor;
+    const offset = layout.offset + sensor;
+    const group = layout.groupOf[sensor] as number;
     for (let b = 0; b <= a; b++) {
-      let value = observe(model, sensor, reading, (accepted[b] as AcceptedReading).v);
+      const { v } = accepted[b] as AcceptedReading;
+      let value =
+        wA * (v[cell] as number) +
+        wB * (v[cell + 1] as number) -
+        wShare * (v[layout.share] as number) +
+        slope * (v[position] as number) +
+        (v[offset] as number) +
+        (group >= 0 ? (v[layout.group + group] as number) : 0);
       if (a === b) value += variance_K2;
       for (let c = 0; c < b; c++) value -= (s[a * m + c] as number) * (s[b * m + c] as number);
       s[a * m + b] = a === b ? Math.sqrt(value) : value / (s[b * m + b] as number);
@@ -302,17 +336,9 @@ function solveNormal(
 
 /** Moves each cell to a temperature, starting the table search from where the cell is. */
 function moveTo(model: TubeModel, state: TubeState, temperature: Float64Array): void {
-  const { tables } = model;
-  const nodes = tables.temperature_K;
-  const last = tables.segments - 1;
+  const { enthalpy } = state;
   for (let i = 0; i < temperature.length; i++) {
-    const t = temperature[i] as number;
-    let s = Math.floor((state.enthalpy[i] as number) * tables.inverse_dH);
-    if (s < 0) s = 0;
-    else if (s > last) s = last;
-    while (s < last && t >= (nodes[s + 1] as number)) s++;
-    while (s > 0 && t < (nodes[s] as number)) s--;
-    const t0 = nodes[s] as number;
-    state.enthalpy[i] = tables.dH * (s + (t - t0) / ((nodes[s + 1] as number) - t0));
+    const h = enthalpy[i] as number;
+    enthalpy[i] = enthalpyNear(model.tables, temperature[i] as number, h);
   }
 }

@@ -114,7 +114,7 @@ function travelOf(model: TubeModel, state: TubeState, drive: TubeDrive): number 
   );
 }
 
-/** Adds scale times v v', both halves alike. */
+/** Adds scale times v v', both halves alike: two rows at a time, the last of an odd number alone. */
 function addRankOne(
   p: Float64Array,
   size: number,
@@ -123,12 +123,18 @@ function addRankOne(
   scale: number,
 ): void {
   const root = Math.sqrt(scale);
-  for (let i = 0; i < cells; i++) {
+  for (let i = 0; i < cells; i += 2) {
+    const other = i + 1 < cells;
     const a = root * (vector[i] as number);
-    if (a === 0) continue;
-    const row = i * size;
+    const b = other ? root * (vector[i + 1] as number) : 0;
+    if (a === 0 && b === 0) continue;
+    const first = i * size;
+    // Without another row, nothing is added once more to the same one.
+    const second = other ? first + size : first;
     for (let j = 0; j < cells; j++) {
-      p[row + j] = (p[row + j] as number) + a * (root * (vector[j] as number));
+      const v = root * (vector[j] as number);
+      p[first + j] = (p[first + j] as number) + a * v;
+      p[second + j] = (p[second + j] as number) + b * v;
     }
   }
 }

@@ -1,5 +1,5 @@
 import { type BedStep, bedSubstep, planSubsteps } from '../bed/kernel.js';
-import { type BedTables, enthalpyAt, temperatureAt } from '../bed/tables.js';
+import { type BedTables, enthalpyNear, temperatureAt } from '../bed/tables.js';
 import type { BedDefinition } from '../definitions.js';
 import {
   type TubeDrive,
@@ -294,7 +294,8 @@ export function followCorrection(
   for (let i = 0; i < before_K.length; i++) {
     const shift = (after_K[i] as number) - (before_K[i] as number);
     for (const layer of wall.enthalpy) {
-      layer[i] = enthalpyAt(tables, temperatureAt(tables, layer[i] as number) + shift);
+      const h = layer[i] as number;
+      layer[i] = enthalpyNear(tables, temperatureAt(tables, h) + shift, h);
     }
   }
 }
