@@ -204,6 +204,28 @@ export interface Breaks {
 }
 
 /**
+ * Rules' times over fixed points of their joint distribution.
+ *
+ * @returns per time of `spread.times`, `NORMAL_COUNT` values [s], none before its run begins; points
+ *   of the same index belong together
+ */
+export function ruleSamples(spread: PlanSpread): Float64Array[] {
+  const { times, covariance, course } = spread;
+  const factor = cholesky(covariance);
+  const points = latinNormals(times.length);
+  return times.map((q, a) => {
+    const from_s = course.episodes[q.episode]?.from_s as number;
+    const own = new Float64Array(NORMAL_COUNT).fill(q.time_s);
+    for (let b = 0; b <= a; b++) {
+      const weight = factor[a]?.[b] as number;
+      const column = points[b] as Float64Array;
+      for (let k = 0; k < NORMAL_COUNT; k++) own[k]! += weight * (column[k] as number);
+    }
+    return own.map((value) => Math.max(from_s, value));
+  });
+}
+
+/**
  * When each run first breaks a rule, over fixed points of the joint distribution.
  *
  * @returns per episode, `NORMAL_COUNT` times [s], Infinity where nothing breaks within the time looked
@@ -214,27 +236,19 @@ export function firstBreaks(spread: PlanSpread): Float64Array[] {
 }
 
 /** As `firstBreaks`, with the rules. */
-export function breaksOf({ times, covariance, course }: PlanSpread): Breaks {
-  const first_s = course.episodes.map(() =>
-    new Float64Array(NORMAL_COUNT).fill(Number.POSITIVE_INFINITY),
-  );
-  const rule = course.episodes.map(() => new Int8Array(NORMAL_COUNT).fill(-1));
-  const factor = cholesky(covariance);
-  const points = latinNormals(times.length);
-  times.forEach((q, a) => {
+export function breaksOf(spread: PlanSpread): Breaks {
+  const { episodes } = spread.course;
+  const first_s = episodes.map(() => new Float64Array(NORMAL_COUNT).fill(Number.POSITIVE_INFINITY));
+  const rule = episodes.map(() => new Int8Array(NORMAL_COUNT).fill(-1));
+  ruleSamples(spread).forEach((samples, a) => {
+    const q = spread.times[a] as RuleTime;
     const own = first_s[q.episode] as Float64Array;
     const which = rule[q.episode] as Int8Array;
-    const from_s = course.episodes[q.episode]?.from_s as number;
-    for (let k = 0; k < NORMAL_COUNT; k++) {
-      let value = q.time_s;
-      for (let b = 0; b <= a; b++) {
-        value += (factor[a]?.[b] as number) * (points[b]?.[k] as number);
-      }
-      value = Math.max(from_s, value);
-      if (!(value < (own[k] as number))) continue;
+    samples.forEach((value, k) => {
+      if (!(value < (own[k] as number))) return;
       own[k] = value;
       which[k] = q.rule;
-    }
+    });
   });
   return { first_s, rule };
 }
