@@ -6,10 +6,11 @@ import type { StoreModel, StoreState } from '../track/storeTracker.js';
 import type { TubeState } from '../track/tube.js';
 import { unseenSigma } from '../track/unseenFlow.js';
 import { earliestQuantiles } from './earliestQuantiles.js';
+import { quantilesAtEnd, quantilesAtStart } from './edge.js';
 import type { Gaussian } from './gaussian.js';
 import { addProfile } from './profileCovariance.js';
 import { BUMP_K, BUMPS, createRoller, type Roller } from './roller.js';
-import { type RolloutResult, RULES, SWEEP_MOST_S } from './rollout.js';
+import { type RolloutResult, RULES } from './rollout.js';
 
 /** What hours are computed from. */
 export interface HoursInput {
@@ -44,7 +45,8 @@ const J_PER_MWH = 3.6e9;
  * the filter's covariance P and that of the calibration it gives the covariance of the tau_r. The
  * hours are the minimum over the rules: its quantiles are taken over fixed quasi-random points of
  * that joint Gaussian, so they carry no sampling noise from call to call. p90 is exceeded with 90 %
- * probability.
+ * probability. Where the central run does not begin, or is not over long after the time answered,
+ * single plants stand for the quantiles: see `quantilesAtStart` and `quantilesAtEnd`.
  *
  * @throws RangeError for a power that is not above 0
  */
@@ -52,20 +54,21 @@ export function computeHours(input: HoursInput, power_W: number): DispatchAnswer
   if (!(power_W > 0)) throw new RangeError(`power_W = ${power_W}: expected above 0`);
   const roller = createRoller(input, power_W);
   const best = roller.best();
-  if (!(best.end_s > 0) || !Number.isFinite(best.end_s)) {
-    return answer(power_W, certain(best, roller.most_s), best.ends_by);
+  const by = best.ends_by;
+  if (!(best.end_s > 0)) return answer(power_W, quantilesAtStart(input, roller, best), by);
+  if (best.end_s > roller.known_to_s) {
+    return answer(power_W, quantilesAtEnd(input, roller, best), by);
   }
   const base = roller.roll();
   const fine = roller.rollFine();
+  if (base.end_s === 0 || fine.end_s === 0) {
+    return answer(power_W, quantilesAtStart(input, roller, best), by);
+  }
   // Rules that were not reached while rolling cannot bind; they are left out of the minimum.
   const live = RULES.map((_, r) => r).filter((r) =>
     [best, base, fine].every((result) => Number.isFinite(result.times_s[r] as number)),
   );
-  if (live.length === 0) {
-    // Only at the very end of the time rolled: nothing to tell its sigma by.
-    const hours = best.end_s / 3600;
-    return answer(power_W, { p90: 0, p50: hours, p10: roller.most_s / 3600 }, best.ends_by);
-  }
+  if (live.length === 0) return answer(power_W, quantilesAtEnd(input, roller, best), by);
   const covariance = live.map(() => new Float64Array(live.length));
   const slope = (times: Float64Array, delta: number, from = base): number[] =>
     live.map((r) => {
@@ -97,22 +100,10 @@ export function computeHours(input: HoursInput, power_W: number): DispatchAnswer
       (covariance[a] as Float64Array)[b]! += sum;
     }
   }
-  return answer(power_W, earliestQuantiles(mean, covariance), best.ends_by);
-}
-
-/**
- * Where no rule was broken within the time rolled, that time. Where an outlet is beyond its limit as
- * soon as its rule holds, nothing is firm: a plant may refuse to start, or run at least until its
- * plenum is swept and at most as long as the rules wait; the middle of the two is p50.
- */
-function certain(result: RolloutResult, most_s: number): Quantiles {
-  if (!Number.isFinite(result.end_s)) {
-    const hours = most_s / 3600;
-    return { p90: hours, p50: hours, p10: hours };
-  }
-  if (result.trips_s === 0 || result.ends_by === 'flow') return { p90: 0, p50: 0, p10: 0 };
-  const middle_s = (Math.min(result.trips_s, SWEEP_MOST_S) + SWEEP_MOST_S) / 2;
-  return { p90: 0, p50: middle_s / 3600, p10: SWEEP_MOST_S / 3600 };
+  const hours = earliestQuantiles(mean, covariance);
+  const within = (h: number): number => Math.min(h, roller.most_s / 3600);
+  const { p90, p50, p10 } = hours;
+  return answer(power_W, { p90: within(p90), p50: within(p50), p10: within(p10) }, by);
 }
 
 /**

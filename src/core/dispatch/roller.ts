@@ -13,6 +13,9 @@ const STEP_S = 300;
 /** On half cells: a little shorter, so that the bed takes most steps in two pieces, not in three. */
 const FINE_STEP_S = 240;
 const MOST_RATED = 4;
+/** Rollouts go on for so much longer, for the slopes of one that ends by `known_to_s`. */
+const BEYOND = 1.15;
+const KNOWN_TO = 1.1;
 /** Smooth bumps per store along which the sensitivity to the profile is taken. */
 export const BUMPS = 6;
 export const BUMP_K = 2;
@@ -28,10 +31,21 @@ export interface Perturbation {
   readonly work?: number;
 }
 
+/** A plant that differs from the estimate in all that is uncertain at once. */
+export interface Member {
+  /** By store and tube, along the cells [K]. */
+  readonly shifts_K: readonly (readonly Float64Array[])[];
+  /** By store, on ln(flow factor). */
+  readonly flow: readonly number[];
+  /** On ln(work factor). */
+  readonly work: number;
+}
+
 /** Rollouts of one state at one power, as it is or with one thing perturbed; see `createRoller`. */
 export interface Roller {
-  /** Longest time that is rolled out [s]. */
+  /** Longest time that is answered [s], and up to which an end is found with its slopes. */
   readonly most_s: number;
+  readonly known_to_s: number;
   /**
    * For gradients: on the estimate's own cells and without layers at the wall, whose part the tube
    * beside them takes; two rollouts differ in nothing but what is perturbed.
@@ -41,6 +55,8 @@ export interface Roller {
   rollFine(change?: Perturbation): RolloutResult;
   /** The best there is, with the layers at the wall on half cells: see `refined`. */
   best(): RolloutResult;
+  /** The same for another plant than the estimate. */
+  member(member: Member): RolloutResult;
 }
 
 /** Rollouts of one unit's present state at one net power [W]. */
@@ -74,7 +90,7 @@ export function createRoller(input: HoursInput, power_W: number): Roller {
     partLoad: (flow_kg_s) => partLoadFactor(spread, 'discharge', flow_kg_s),
     power_W,
     ambient_K: input.ambient_K,
-    most_s,
+    most_s: BEYOND * most_s,
   };
   const changed = (stores: readonly RolloutStore[], change: Perturbation): RolloutStore[] =>
     stores.map((store, s) =>
@@ -90,10 +106,44 @@ export function createRoller(input: HoursInput, power_W: number): Roller {
   const fineWorks = worksOf(2);
   return {
     most_s,
+    known_to_s: KNOWN_TO * most_s,
     roll: (change = {}) => go(changed(bare, change), STEP_S, works, change),
     rollFine: (change = {}) =>
       go(changed(bare, change).map(refined), FINE_STEP_S, fineWorks, change),
     best: () => go(whole.map(refined), FINE_STEP_S, fineWorks, {}),
+    member: (member) => {
+      const stores = whole.map((store, s) =>
+        shifted(
+          input.models[s] as StoreModel,
+          store,
+          member.shifts_K[s] as Float64Array[],
+          member.flow[s] as number,
+        ),
+      );
+      return go(stores.map(refined), FINE_STEP_S, fineWorks, { work: member.work });
+    },
+  };
+}
+
+/** Another plant's store: the layers at the wall, after the tubes, move with the tube beside them. */
+function shifted(
+  model: StoreModel,
+  store: RolloutStore,
+  shifts_K: readonly Float64Array[],
+  flow: number,
+): RolloutStore {
+  return {
+    ...store,
+    tubes: store.tubes.map((tube, k) => {
+      const by = shifts_K[k < model.tubes.length ? k : (model.wall?.tube ?? 0)] as Float64Array;
+      return {
+        ...tube,
+        flowFactor: tube.flowFactor * Math.exp(flow),
+        enthalpy: tube.enthalpy.map((h, i) =>
+          enthalpyAt(model.tables, temperatureAt(model.tables, h) + (by[i] as number)),
+        ),
+      };
+    }),
   };
 }
 

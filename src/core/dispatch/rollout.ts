@@ -62,6 +62,8 @@ export interface RolloutResult {
    * plant would stop then, or not start at all.
    */
   readonly trips_s: number;
+  /** What each rule had left at its first test, negative where broken; NaN where there is no such rule. */
+  readonly first_margins: Float64Array;
   /** Earliest of them, and which. Infinity with `empty` where none was broken. */
   readonly end_s: number;
   readonly ends_by: EndCause;
@@ -99,6 +101,7 @@ export function rollOut(
   const times = new Float64Array(RULES.length).fill(Number.POSITIVE_INFINITY);
   const before = new Float64Array(RULES.length).fill(Number.NaN);
   const beforeAt = new Float64Array(RULES.length);
+  const atFirst = new Float64Array(RULES.length).fill(Number.NaN);
   const plenum = input.stores.map((s, i) =>
     Number.isFinite(s.plenum_K) ? s.plenum_K : mixedEnd(s, beds[i] as Float64Array[]),
   );
@@ -137,6 +140,7 @@ export function rollOut(
     ];
     if (!swept && (t >= SWEEP_MOST_S || isSwept(input.stores, plenum, sweptMass, t))) {
       swept = true;
+      atFirst.set(margins);
     }
     if (swept) step_s = input.step_s;
     const mean = lags.reduce((sum, lag) => sum + lag, 0) / lags.length;
@@ -191,7 +195,13 @@ export function rollOut(
       cause = RULES[r] as EndCause;
     }
   });
-  return { times_s: times, trips_s: trips, end_s: end, ends_by: cause };
+  return {
+    times_s: times,
+    trips_s: trips,
+    first_margins: atFirst,
+    end_s: end,
+    ends_by: cause,
+  };
 }
 
 /**
