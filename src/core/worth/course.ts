@@ -22,6 +22,8 @@ export interface CourseStep {
   readonly means?: readonly (readonly TubeMean[])[];
   /** With the means: the layers at each store's wall, null where there are none. */
   readonly walls?: readonly (WallState | null)[];
+  /** With the means: time since each store's profile was last drawn anew [s]. */
+  readonly known_s?: readonly number[];
 }
 
 /**

@@ -143,7 +143,9 @@ function close(recorder: CourseRecorder): void {
     ),
   );
   const walls = structuredClone(state.stores.map(({ wall }) => wall));
-  recorder.steps.push({ mode: open.mode, drives: open.drives, scans: open.scans, means, walls });
+  const { mode, drives, scans } = open;
+  const known_s = state.stores.map((store) => store.known_s);
+  recorder.steps.push({ mode, drives, scans, means, walls, known_s });
   recorder.open = null;
 }
 

@@ -53,7 +53,8 @@ export function* weighSensors(
     const drive = step.drives[s] as CourseStep['drives'][number];
     for (const tube of base) stepWeighed(tube, drive, step.scans);
     moveMean(store, state, base, step, s);
-    state.known_s += drive.dt_s;
+    // As recorded: a profile that was drawn anew knows nothing of the rock at the wall.
+    state.known_s = step.known_s?.[s] ?? state.known_s + drive.dt_s;
     if (variants !== null) {
       for (const { k, tube } of variants.tubes) {
         stepWeighed(tube, drive, step.scans);

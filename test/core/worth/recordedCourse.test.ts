@@ -79,6 +79,7 @@ describe('a course from a recording of the finer plant', () => {
     expect(last.means![1]![0]!.further).toEqual(state.stores[1]!.tubes[0]!.further);
     expect(state.stores[0]!.wall).not.toBeNull();
     expect(last.walls).toEqual(state.stores.map((store) => store.wall));
+    expect(last.known_s).toEqual(state.stores.map((store) => store.known_s));
     expect(course.steps[0]!.walls).not.toEqual(last.walls);
   });
 
