@@ -29,11 +29,13 @@ export interface Delivered {
 export interface Episode {
   readonly direction: Direction;
   readonly from_s: number;
-  /** Commanded end. */
+  /** Commanded end, a ramp down to standing included. */
   readonly to_s: number;
+  /** End of its last power, where the ramp down begins. */
+  readonly held_s: number;
   /**
-   * When each rule of `RULES` breaks; beyond `to_s` as if the last power went on. Infinity where that
-   * is not within the time looked ahead.
+   * When each rule of `RULES` breaks; beyond `held_s` as if the last power went on. Infinity where
+   * that is not within the time looked ahead.
    */
   readonly times_s: Float64Array;
   readonly first_s: number;
@@ -113,7 +115,8 @@ export interface Run {
  * Where that is above the greatest flow, the unit goes on with the greatest and gives less; below its
  * least power, or where another rule breaks, it stops. Rules wait until the outlet's plenum is swept,
  * 10 minutes at most (see rollOut, whose timing within a step this follows). Past a stop, and past
- * the commanded end, copies of the beds go on so that every rule has a time.
+ * the end of the last power, copies of the beds go on so that every rule has a time; what breaks
+ * within the ramp down to standing stops the unit there but is no rule's time.
  *
  * @param pieces ramps and runs of one direction, one after the other
  * @param going a run of this direction that was cut where `pieces` begin, to go on with as if it had
@@ -133,8 +136,13 @@ export function marchEpisode(
   const run = going === null ? startRun(model, ahead, direction, first.from_s) : copyRun(going);
   const delivered: Delivered[] = [];
   let stopped: number | null = null;
+  /** Before a ramp down to standing: what a unit that held its power would go on with. */
+  let held: { run: Run; ahead: BedsAhead; power_W: number } | null = null;
   for (const piece of pieces) {
     if (stopped !== null) break;
+    if (piece === last && piece !== first && piece.purpose === 'ramp' && piece.power1_W === 0) {
+      held = { run: copyRun(run), ahead: copyAhead(ahead), power_W: Math.abs(piece.power0_W) };
+    }
     while (stopped === null && run.t < piece.to_s - 1e-6) {
       const dt = Math.min(stepOf(run, options.step_s), piece.to_s - run.t);
       const from = run.t;
@@ -155,13 +163,18 @@ export function marchEpisode(
   }
   const at = stopped ?? run.t;
   const running = { run: copyRun(run), stopped: stopped !== null };
-  const on = copyAhead(ahead);
-  const power = Math.abs(stopped === null ? last.power1_W : powerAt(pieceAt(pieces, at), at));
-  const until = stopped === null ? run.t + options.beyond_s : Number.POSITIVE_INFINITY;
-  if (options.beyond_s > 0 || stopped !== null) followOn(model, on, run, power, until, options);
+  const held_s = held?.run.t ?? last.to_s;
+  const on = held ?? {
+    run,
+    ahead: copyAhead(ahead),
+    power_W: Math.abs(stopped === null ? last.power1_W : powerAt(pieceAt(pieces, at), at)),
+  };
+  const whole = stopped === null || held !== null;
+  const until = whole ? on.run.t + options.beyond_s : Number.POSITIVE_INFINITY;
+  if (options.beyond_s > 0 || !whole) followOn(model, on.ahead, on.run, on.power_W, until, options);
   let best = Number.POSITIVE_INFINITY;
   let cause: EndCause = 'empty';
-  run.times.forEach((time, r) => {
+  on.run.times.forEach((time, r) => {
     if (time < best) {
       best = time;
       cause = RULES[r] as EndCause;
@@ -172,12 +185,13 @@ export function marchEpisode(
       direction,
       from_s: first.from_s,
       to_s: last.to_s,
-      times_s: run.times,
+      held_s,
+      times_s: on.run.times,
       first_s: best,
       ends_by: cause,
       stopped_s: stopped,
       derated_s: running.run.derated,
-      shares: run.shares,
+      shares: on.run.shares,
     },
     running,
     delivered: stopped === null ? delivered : cutAt(delivered, stopped),
