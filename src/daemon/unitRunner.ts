@@ -7,6 +7,7 @@ import {
   Assembler,
   type AssemblerOptions,
   type AssemblerSnapshot,
+  believedTime,
   type ClosedScan,
   type ReadingFate,
 } from '../core/scan/assemble.js';
@@ -131,7 +132,7 @@ export class UnitRunner {
     if (channel === undefined) return 'unconfigured';
     const { time_ms, arrival_ms, value } = entry;
     const fate = this.assembler.add({ channel, time_ms, arrival_ms, value });
-    if (fate !== 'future') this.plantClock.observe(time_ms, steady_ms);
+    if (fate !== 'future') this.plantClock.observe(believedTime(entry), steady_ms);
     return fate;
   }
 

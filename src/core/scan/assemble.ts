@@ -38,6 +38,14 @@ export const READING_FATES = [
 ] as const;
 export type ReadingFate = (typeof READING_FATES)[number];
 
+/** What a reading tells of the plant's time: its source time, but never more than its arrival [ms]. */
+export function believedTime({
+  time_ms,
+  arrival_ms,
+}: Pick<Reading, 'time_ms' | 'arrival_ms'>): number {
+  return Math.min(time_ms, arrival_ms);
+}
+
 /** Why a scan was closed: all periodic channels had spoken, or its time was over. */
 export type CloseCause = 'complete' | 'deadline';
 
@@ -82,7 +90,11 @@ export interface AssemblerSnapshot {
  * at or past (i+1)*period + deadline has come, or when the caller, who alone has a clock, closes
  * them by `closeThrough`. What comes out is a function of the sequence of calls alone.
  *
- * Memory is bounded: an open scan is never older than deadline + period before the newest reading.
+ * A reading stamped ahead of its arrival waits in its scan and closes none before its arrival would:
+ * one gateway whose clock is fast must not shut out the readings of the others.
+ *
+ * Memory is bounded: an open scan is never older than deadline + period before the newest reading, nor
+ * further ahead of it than the tolerance.
  */
 export class Assembler {
   private readonly period_ms: number;
@@ -115,7 +127,7 @@ export class Assembler {
     this.holdState = startHold(unit);
   }
 
-  /** Newest source time believed so far [ms], null before the first. */
+  /** Newest source time so far, none later than its arrival [ms]; null before the first. */
   get newest(): number | null {
     return Number.isFinite(this.newest_ms) ? this.newest_ms : null;
   }
@@ -136,7 +148,9 @@ export class Assembler {
     }
     if (time_ms > reading.arrival_ms + this.options.future_tolerance_ms) return 'future';
     const index = Math.floor(time_ms / this.period_ms);
-    this.next ??= index;
+    const believed_ms = believedTime(reading);
+    const isFast = time_ms - believed_ms > this.period_ms;
+    this.next ??= isFast ? Math.floor(believed_ms / this.period_ms) : index;
     if (index < this.next) return this.lastIndex[channel] === index ? 'surplus' : 'late';
     const slot = this.slot(index);
     const before = slot.times[channel]!;
@@ -151,9 +165,9 @@ export class Assembler {
     slot.newest_ms = Math.max(slot.newest_ms, time_ms);
     this.lastIndex[channel] = Math.max(this.lastIndex[channel]!, index);
     this.newestByChannel[channel] = Math.max(this.newestByChannel[channel]!, time_ms);
-    if (time_ms > this.newest_ms) {
-      this.newest_ms = time_ms;
-      this.closeTo = Math.max(this.closeTo, this.overAt(time_ms));
+    if (believed_ms > this.newest_ms) {
+      this.newest_ms = believed_ms;
+      this.closeTo = Math.max(this.closeTo, this.overAt(believed_ms));
     }
     if (time_ms === before) return 'repeated';
     return older ? 'out_of_order' : 'taken';

@@ -137,6 +137,50 @@ describe('a reading', () => {
     expect(add(assembler, A, 1060, 1, 1000)).toBe('taken');
   });
 
+  it('stamped ahead within the tolerance waits in its scan and shuts no other channel out', () => {
+    // The gateway of A runs 55 s fast for good; B and C are on time, B a little late.
+    const assembler = new Assembler(scanUnit(), OPTIONS);
+    const closed: ClosedScan[] = [];
+    for (let now = 0; now < 600; now += 30) {
+      expect(add(assembler, A, now + 55, 1, now)).toBe('taken');
+      expect(add(assembler, C, now, 3, now)).toBe('taken');
+      expect(add(assembler, B, now, 2, now + 5)).toBe('taken');
+      closed.push(...drain(assembler));
+    }
+    expect(closed.map(({ index }) => index)).toEqual(closed.map((_, i) => i));
+    expect(closed.length).toBeGreaterThan(17);
+    for (const { scan, cause } of closed.slice(1)) {
+      expect(cause).toBe('complete');
+      expect([...scan.values].slice(0, 3)).toEqual([1, 2, 3]);
+    }
+    expect(assembler.newest).toBe(570_000);
+  });
+
+  it('stamped ahead once loses none of what others say meanwhile', () => {
+    const assembler = new Assembler(scanUnit(), OPTIONS);
+    const fates: string[] = [];
+    for (let now = 0; now < 150; now += 30) {
+      for (const channel of [A, B, C]) {
+        const wrong = now === 30 && channel === A;
+        fates.push(add(assembler, channel, wrong ? now + 58 : now, channel, now));
+      }
+    }
+    expect(fates).toEqual(fates.map((_, i) => (i === 6 ? 'out_of_order' : 'taken')));
+    // The one scan that lacks the reading with the wrong time closes by the next but one's.
+    const found = drain(assembler).map(({ cause }) => cause);
+    expect(found).toEqual(['complete', 'deadline', 'complete', 'complete', 'complete']);
+  });
+
+  it('stamped ahead as the very first begins no later than its arrival', () => {
+    const assembler = new Assembler(scanUnit(), OPTIONS);
+    expect(add(assembler, A, 655, 1, 600)).toBe('taken');
+    expect(add(assembler, B, 600, 2, 600)).toBe('taken');
+    // Clocks that differ by less than a scan are the rule: no scan is made of that.
+    const usual = new Assembler(scanUnit(), OPTIONS);
+    for (const channel of [A, B, C]) add(usual, channel, 600, channel, 599.9);
+    expect(drain(usual).map(({ index }) => index)).toEqual([20]);
+  });
+
   it('with a channel or a time that cannot be is misuse, named with its value', () => {
     const assembler = new Assembler(scanUnit(), OPTIONS);
     expect(() => add(assembler, 4, 0, 1)).toThrow(/reading\.channel .* got 4/);
