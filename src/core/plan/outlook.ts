@@ -34,11 +34,14 @@ export interface Outlook {
   best(command: Command, options?: Partial<MarchOptions>): Course;
   /** The beds and arrays of `best`, for marches that go on from where others ended. */
   beds(): { readonly ahead: AheadModel; readonly options: MarchOptions };
+  /** Those of `march`. */
+  bare(): { readonly ahead: AheadModel; readonly options: MarchOptions };
 }
 
-const STEP_S = 300;
+/** Steps of the marches for gradients and of the best, at rated power [s]. */
+export const STEP_S = 300;
 /** On half cells: a little shorter, so that the bed takes most steps in two pieces, not in three. */
-const FINE_STEP_S = 240;
+export const FINE_STEP_S = 240;
 /** How far past its end a run is followed: a reserve beyond is as good as certain [s]. */
 export const BEYOND_S = 2 * 3600;
 
@@ -120,5 +123,6 @@ export function createOutlook(model: UnitModel, state: UnitState, load = 1): Out
       ahead: aheadOf(whole.map(refined), {}),
       options: { step_s: FINE_STEP_S, beyond_s: 0, works: fineWorks() },
     }),
+    bare: () => ({ ahead: first, options: { step_s: STEP_S, beyond_s: 0, works } }),
   };
 }
