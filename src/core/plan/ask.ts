@@ -3,13 +3,18 @@ import { unitModel } from '../unitModel.js';
 import type { UnitState } from '../unitState.js';
 import { planContext } from './context.js';
 import { type Headroom, type HeadroomAsk, headroomOf } from './headroom.js';
+import type { OffersAsk } from './offerAsk.js';
+import { type Offer, offersOf } from './offers.js';
 
 /** A question about what lies ahead of a unit's present state. */
-export type PlanQuestion = { readonly kind: 'headroom'; readonly ask: HeadroomAsk };
+export type PlanQuestion =
+  | { readonly kind: 'headroom'; readonly ask: HeadroomAsk }
+  | { readonly kind: 'offers'; readonly ask: OffersAsk };
 
 /** What each kind of question is answered with. */
 export interface PlanAnswers {
   readonly headroom: Headroom[];
+  readonly offers: Offer[];
 }
 export type PlanAnswer = PlanAnswers[keyof PlanAnswers];
 
@@ -27,5 +32,7 @@ export function answerPlan(
   switch (question.kind) {
     case 'headroom':
       return headroomOf(context, question.ask);
+    case 'offers':
+      return offersOf(context, question.ask);
   }
 }

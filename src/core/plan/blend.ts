@@ -1,0 +1,96 @@
+import type { Course } from './course.js';
+import type { PlanResponse, RuleTime } from './spread.js';
+
+/** Slopes at one power, to go between by. */
+export interface ResponseNode {
+  readonly power_W: number;
+  readonly course: Course;
+  readonly times: readonly RuleTime[];
+  readonly response: PlanResponse;
+}
+
+/** Nodes stand no further apart than by this factor in power, where there are powers between. */
+const FURTHEST = 3;
+
+/**
+ * Which powers' slopes are marched: the least, the greatest, and as many between as keep neighbours
+ * within `FURTHEST` of each other; the rest goes between them.
+ *
+ * @returns indices in `powers_W`, ascending in power
+ */
+export function nodesAmong(powers_W: readonly number[]): number[] {
+  const order = powers_W.map((_, i) => i).sort((a, b) => powerOf(a) - powerOf(b));
+  function powerOf(i: number): number {
+    return powers_W[i] as number;
+  }
+  const nodes: number[] = [];
+  order.forEach((i, at) => {
+    const next = order[at + 1];
+    const last = nodes[nodes.length - 1];
+    const needed =
+      last === undefined || next === undefined || powerOf(next) > FURTHEST * powerOf(last);
+    if (needed) nodes.push(i);
+  });
+  return nodes;
+}
+
+/**
+ * Slopes at a power between two whose own were marched. What a run's end moves by, over the run's
+ * length, changes little with its power: that ratio goes linearly in ln(power) from one to the other.
+ * A rule that one of the two never comes to takes the other's ratio.
+ *
+ * @param nodes ascending in power, the power asked for among them
+ * @param times, course at the power asked for
+ * @returns null where a rule of `times` is known at neither: its slopes have to be marched
+ */
+export function blendResponse(
+  nodes: readonly ResponseNode[],
+  power_W: number,
+  course: Course,
+  times: readonly RuleTime[],
+): PlanResponse | null {
+  const above = nodes.findIndex((node) => node.power_W >= power_W);
+  const high = nodes[above];
+  const low = nodes[Math.max(0, above - 1)];
+  if (high === undefined || low === undefined || low.power_W > power_W) return null;
+  const span = Math.log(high.power_W / low.power_W);
+  const weight = span > 0 ? Math.log(power_W / low.power_W) / span : 0;
+  const rows = times.map((q) => {
+    const length = lengthOf(course, q);
+    const share = (node: ResponseNode, own: number): { at: number; factor: number }[] => {
+      const at = node.times.findIndex((p) => p.episode === q.episode && p.rule === q.rule);
+      const before = at < 0 ? 0 : lengthOf(node.course, node.times[at] as RuleTime);
+      return before > 0 ? [{ at, factor: (own * length) / before }] : [];
+    };
+    const [a] = share(low, 1 - weight);
+    const [b] = share(high, weight);
+    if (a === undefined && b === undefined) return null;
+    const alone = a === undefined ? weight : b === undefined ? 1 - weight : 1;
+    // Nothing to divide by: the power is that of the node which knows nothing of the rule.
+    return alone === 0 ? null : { a, b, alone };
+  });
+  if (rows.some((row) => row === null)) return null;
+  const blend = (of: (response: PlanResponse) => readonly number[]): number[] =>
+    rows.map((row) => {
+      const { a, b, alone } = row as NonNullable<typeof row>;
+      const low_ = a === undefined ? 0 : a.factor * (of(low.response)[a.at] as number);
+      const high_ = b === undefined ? 0 : b.factor * (of(high.response)[b.at] as number);
+      return (low_ + high_) / alone;
+    });
+  return {
+    stores: low.response.stores.map((store, s) => ({
+      bumps: store.bumps.map((_, k) => blend((r) => r.stores[s]?.bumps[k] as readonly number[])),
+      flow: blend((r) => r.stores[s]?.flow as readonly number[]),
+      transfer: blend((r) => r.stores[s]?.transfer as readonly number[]),
+    })),
+    work: {
+      discharge: blend((r) => r.work.discharge),
+      charge: blend((r) => r.work.charge),
+    },
+    ambient: blend((r) => r.ambient),
+  };
+}
+
+function lengthOf(course: Course, q: RuleTime): number {
+  return q.time_s - (course.episodes[q.episode]?.from_s as number);
+}
