@@ -17,6 +17,9 @@ import type { UnitDefinition } from '../src/core/definitions.js';
 import { advance, hoursAt, startUnit } from '../src/core/unit.js';
 import { unitModel } from '../src/core/unitModel.js';
 import { createDemoPlant } from '../src/plant/demoPlant.js';
+import { helpIfAsked } from './help.js';
+
+helpIfAsked(import.meta.url);
 
 const root = fileURLToPath(new URL('..', import.meta.url));
 const folder = `${root}.bench`;

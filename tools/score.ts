@@ -15,6 +15,7 @@ import { writeFileSync } from 'node:fs';
 import { join } from 'node:path';
 import { parseArgs } from 'node:util';
 import cliProgress from 'cli-progress';
+import { helpIfAsked } from './help.js';
 import { blocksOf } from './score/blocks.js';
 import { resultHashes, truthHash } from './score/codeHash.js';
 import { folder, keepFolders } from './score/folder.js';
@@ -25,6 +26,8 @@ import { QUICK, SCENARIOS } from './score/scenarios.js';
 import { FIXED_FROM, freshSeeds, seedsDone } from './score/seeds.js';
 import { tableText } from './score/table.js';
 import { truthIsKept } from './score/truthOf.js';
+
+helpIfAsked(import.meta.url);
 
 const { values } = parseArgs({
   options: {

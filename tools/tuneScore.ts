@@ -11,7 +11,10 @@ import { fork } from 'node:child_process';
 import { fileURLToPath } from 'node:url';
 import { parseArgs } from 'node:util';
 import { table } from '../src/commands/table.js';
+import { helpIfAsked } from './help.js';
 import { type OneRun, oneRun } from './tune/oneRun.js';
+
+helpIfAsked(import.meta.url);
 
 const { values } = parseArgs({
   options: {
