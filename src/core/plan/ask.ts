@@ -1,6 +1,7 @@
 import type { UnitDefinition } from '../definitions.js';
 import { unitModel } from '../unitModel.js';
 import type { UnitState } from '../unitState.js';
+import { type Capability, type CapabilityAsk, capabilityOf } from './capability.js';
 import { planContext } from './context.js';
 import { type Headroom, type HeadroomAsk, headroomOf } from './headroom.js';
 import type { OffersAsk } from './offerAsk.js';
@@ -9,11 +10,13 @@ import { type Offer, offersOf } from './offers.js';
 /** A question about what lies ahead of a unit's present state. */
 export type PlanQuestion =
   | { readonly kind: 'headroom'; readonly ask: HeadroomAsk }
+  | { readonly kind: 'capability'; readonly ask: CapabilityAsk }
   | { readonly kind: 'offers'; readonly ask: OffersAsk };
 
 /** What each kind of question is answered with. */
 export interface PlanAnswers {
   readonly headroom: Headroom[];
+  readonly capability: Capability;
   readonly offers: Offer[];
 }
 export type PlanAnswer = PlanAnswers[keyof PlanAnswers];
@@ -32,6 +35,8 @@ export function answerPlan(
   switch (question.kind) {
     case 'headroom':
       return headroomOf(context, question.ask);
+    case 'capability':
+      return capabilityOf(context, question.ask);
     case 'offers':
       return offersOf(context, question.ask);
   }
