@@ -1,5 +1,7 @@
 import type { Command } from 'commander';
 import type { DispatchAnswer, Quality } from '../core/estimate.js';
+import type { CommandCause } from '../core/plan/leg.js';
+import { type LimitedAnswer, limitedAnswers } from '../core/plan/limitedBy.js';
 import type { Scan } from '../core/scan/scan.js';
 import { advance, startUnit } from '../core/unit.js';
 import { RockhourError } from '../errors.js';
@@ -26,7 +28,7 @@ interface HoursAnswer {
   readonly age_s: number | null;
   readonly quality: Quality | null;
   readonly state_of_charge: number | null;
-  readonly answers: readonly DispatchAnswer[];
+  readonly answers: readonly LimitedAnswer[];
 }
 
 async function fromRecording(options: HoursOptions): Promise<HoursAnswer> {
@@ -59,7 +61,7 @@ async function fromRecording(options: HoursOptions): Promise<HoursAnswer> {
     age_s: at_ms === null ? 0 : (at_ms - last.time_ms) / 1000,
     quality: estimate.quality,
     state_of_charge: estimate.state_of_charge,
-    answers: estimate.dispatch ?? [],
+    answers: limitedAnswers(unit, estimate.time, estimate.dispatch ?? []),
   };
 }
 
@@ -110,6 +112,15 @@ async function fromDaemon(url: string, options: HoursOptions): Promise<HoursAnsw
   };
 }
 
+export const LIMIT_WORDS: Readonly<Record<CommandCause, string>> = {
+  start_up: 'the unit has to start first',
+  change_over: 'the unit has to change its direction first',
+  below_least_power: 'less than the machine can hold',
+  above_greatest_power: 'more than the machine gives',
+  connection: 'more than the connection lets through at some time of it',
+  outage: 'an outage is planned within it',
+};
+
 function text(answer: HoursAnswer): string {
   const age = answer.age_s === null ? '' : `, ${Math.round(answer.age_s)} s old`;
   const charge =
@@ -128,6 +139,13 @@ function text(answer: HoursAnswer): string {
   return [
     `${answer.unit}: estimate of ${answer.time}${age}, quality ${answer.quality ?? 'unknown'}${charge}`,
     table([...header, 'ends by'], rows),
+    ...answer.answers.flatMap(({ power_MW, limited_by }) =>
+      limited_by === null
+        ? []
+        : [
+            `${power_MW} MW cannot be given all the while (${limited_by}): ${LIMIT_WORDS[limited_by]}.`,
+          ],
+    ),
     'p90 is the firm figure: exceeded with 90 % probability.',
   ].join('\n');
 }

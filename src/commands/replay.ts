@@ -2,6 +2,7 @@ import { resolve } from 'node:path';
 import type { Command } from 'commander';
 import { JsonLinesWriter } from '../adapters/recording/lines.js';
 import type { UnitDefinition } from '../core/definitions.js';
+import { limitedAnswers } from '../core/plan/limitedBy.js';
 import { advance, hoursDue, startUnit } from '../core/unit.js';
 import { RockhourError } from '../errors.js';
 import { replayLine } from './replayLine.js';
@@ -54,6 +55,8 @@ interface Summary {
   to: string | null;
   raised: Record<string, number>;
   qualities: Record<string, number>;
+  /** Answers of hours whose power a limit keeps the unit from, by power and limit. */
+  limited: Record<string, number>;
   seconds: number;
   notes: string[];
 }
@@ -74,6 +77,9 @@ function tell(summary: Summary, out: string): void {
     `${summary.unit}: ${summary.rows} rows read, ${summary.lines} lines written to ${out}${span}, in ${summary.seconds.toFixed(1)} s`,
     `quality: ${words(summary.qualities) || 'no scan'}`,
     `raised: ${words(summary.raised) || 'nothing'}`,
+    ...(Object.keys(summary.limited).length === 0
+      ? []
+      : [`hours at powers that a limit binds, answered all the same: ${words(summary.limited)}`]),
     ...summary.notes,
   ];
   process.stderr.write(`${lines.join('\n')}\n`);
@@ -96,6 +102,7 @@ async function replay(options: ReplayOptions): Promise<void> {
     to: null,
     raised: {},
     qualities: {},
+    limited: {},
     seconds: 0,
     notes: [],
   };
@@ -113,6 +120,9 @@ async function replay(options: ReplayOptions): Promise<void> {
       count(summary.qualities, step.estimate.quality);
       for (const event of step.events)
         if (event.transition === 'raised') count(summary.raised, event.kind);
+      const { time, dispatch = [] } = step.estimate;
+      for (const { power_MW, limited_by } of limitedAnswers(unit, time, dispatch))
+        if (limited_by !== null) count(summary.limited, `${power_MW} MW ${limited_by}`);
       return writer.write(replayLine(step));
     });
     summary.rows = reader.counts.rows;

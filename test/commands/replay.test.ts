@@ -105,8 +105,13 @@ describe('rockhour replay', () => {
   it('writes to standard output, and its summary as JSON', async () => {
     const piped = await replay('-');
     expect(piped.stdout.trimEnd().split('\n')).toHaveLength(12);
-    const summed = await replay(file('summed.jsonl'), '--json');
-    expect(JSON.parse(summed.stdout)).toMatchObject({ unit: unit.id, rows: 12, lines: 12 });
+    // The machine gives 2 MW: asked for more it is answered, with a word on standard error.
+    const summed = await replay(file('summed.jsonl'), '--json', '--hours-at', '2.5,1');
+    expect(JSON.parse(summed.stdout)).toMatchObject({
+      ...{ unit: unit.id, rows: 12, lines: 12 },
+      limited: { '2.5 MW above_greatest_power': 1 },
+    });
+    expect(Object.keys(lines(file('summed.jsonl'))[0].dispatch[0])).not.toContain('limited_by');
   });
 });
 
@@ -194,15 +199,16 @@ describe('rockhour hours from a recording', () => {
       const answer = JSON.parse(stdout);
       expect(answer.time).toBe(replayed[row].time);
       expect(answer.age_s).toBe(at ? 10 : 0);
-      expect(answer.answers).toEqual(replayed[row].dispatch);
+      expect(answer.answers).toEqual([{ ...replayed[row].dispatch[0], limited_by: null }]);
     }
   });
 
   it('prints a table for people', async () => {
-    const { stdout, code } = await rockhour([...base, '--power', '1,1.5']);
+    const { stdout, code } = await rockhour([...base, '--power', '1,0.3']);
     expect(code).toBe(0);
     expect(stdout).toMatch(/MW +h p90 +h p50 +h p10/);
-    expect(stdout.trimEnd().split('\n')).toHaveLength(5);
+    expect(stdout).toMatch(/^0\.3 MW cannot be given .*below_least_power.*can hold\.$/m);
+    expect(stdout.trimEnd().split('\n')).toHaveLength(6);
   });
 
   it.each([

@@ -1,5 +1,6 @@
 import type { PlanAnswers, PlanQuestion } from '../../core/plan/ask.js';
 import { HttpFault } from './faults.js';
+import { limitsView } from './limitsView.js';
 import type { PlantService, UnitNow } from './service.js';
 import { ageOf } from './views.js';
 
@@ -55,6 +56,7 @@ export async function askPlan<K extends PlanQuestion['kind']>(
       stale: after.stale,
       quality: now.estimate.quality,
       given: GIVEN,
+      limits: limitsView(now.unit, Date.parse(time)),
     },
     answer: found.answer as PlanAnswers[K],
   };

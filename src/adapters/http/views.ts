@@ -1,7 +1,9 @@
 import type { StoreDefinition, UnitDefinition } from '../../core/definitions.js';
 import type { Estimate, ProfileView } from '../../core/estimate.js';
+import { limitedAnswers } from '../../core/plan/limitedBy.js';
 import { ZERO_CELSIUS_K } from '../../core/units.js';
 import type { UnitWorth } from '../../core/worth/unitWorth.js';
+import { limitsView } from './limitsView.js';
 import type {
   StreamStateView,
   UnitDefinitionView,
@@ -46,7 +48,8 @@ function storeDefinition(store: StoreDefinition, unit: UnitDefinition) {
   };
 }
 
-export function definitionView(unit: UnitDefinition): UnitDefinitionView {
+/** @param now_ms time that the limits are told for */
+export function definitionView(unit: UnitDefinition, now_ms: number): UnitDefinitionView {
   return {
     unit: unit.id,
     name: unit.name,
@@ -55,6 +58,7 @@ export function definitionView(unit: UnitDefinition): UnitDefinitionView {
     scan_period_s: unit.scan_period_s,
     hours_at_MW_el: unit.hours_at_W.map((power) => power / WATT_PER_MW),
     stores: unit.stores.map((store) => storeDefinition(store, unit)),
+    limits: limitsView(unit, now_ms),
   };
 }
 
@@ -99,7 +103,7 @@ export function stateView(now: UnitNow): UnitStateView {
         : {
             time: dispatch.time,
             age_s: ageOf(now, dispatch.time),
-            answers: [...dispatch.answers],
+            answers: limitedAnswers(now.unit, dispatch.time, dispatch.answers),
           },
     age_s: now.age_s,
     stale: now.stale,

@@ -1,4 +1,4 @@
-import { isTimeZone } from '../../core/plan/ceilings.js';
+import { isTimeZone } from '../../core/plan/localTime.js';
 import type { Path } from '../faults.js';
 import { minutesOf } from '../resolveTrade.js';
 import type { UnitBlock } from '../schema/site.js';
@@ -6,6 +6,8 @@ import type { ConnectionBlock } from '../schema/trade.js';
 import { type CrossFault, cross } from './cross.js';
 
 const DAY_MIN = 1440;
+/** Area and place: the runtime's list also has abbreviations and offsets, which know no summer time. */
+const NAMED = /^(?:UTC|[A-Z]\w+\/[A-Z][\w/+-]*)$/;
 const SIDES = ['export_max_MW_el', 'import_max_MW_el'] as const;
 const SIDE_OF = { charge: 'import_max_MW_el', discharge: 'export_max_MW_el' } as const;
 
@@ -27,7 +29,7 @@ export function connectionFaults(unit: UnitBlock, path: Path): CrossFault[] {
 }
 
 function zoneFaults({ time_zone }: ConnectionBlock, at: Path): CrossFault[] {
-  if (isTimeZone(time_zone)) return [];
+  if (NAMED.test(time_zone) && isTimeZone(time_zone)) return [];
   return [
     cross([...at, 'time_zone'], time_zone, 'a zone of the IANA list, such as Europe/Berlin', {
       hint: 'abbreviations such as CEST and fixed offsets tell no summer time',

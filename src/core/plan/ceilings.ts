@@ -1,15 +1,8 @@
-import { DateTime, IANAZone } from 'luxon';
+import { DateTime } from 'luxon';
 import type { ConnectionDefinition, LimitsDefinition } from '../definitions.js';
 import type { Ceiling } from './leg.js';
 
 const DAY_MIN = 1440;
-
-/** True for a name of the IANA list, which knows summer time; abbreviations and offsets are none. */
-export function isTimeZone(name: string): boolean {
-  return (
-    (name === 'UTC' || /^[A-Z][A-Za-z0-9_+-]*\/[A-Z]/.test(name)) && IANAZone.isValidZone(name)
-  );
-}
 
 /**
  * What connection and outages leave between two times: limits by the time of day are those of the

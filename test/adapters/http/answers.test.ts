@@ -13,6 +13,7 @@ import {
 } from '../../../src/adapters/http/schema/answers.js';
 import { unitWorthSchema } from '../../../src/adapters/http/schema/worth.js';
 import { testApp } from './httpApp.js';
+import { ScriptedPlant } from './scriptedPlant.js';
 
 type Built = Awaited<ReturnType<typeof testApp>>;
 let built: Built | null = null;
@@ -78,7 +79,86 @@ describe('the good answers, each held against the schema that documents it', () 
     // 768.4 K - 273.15 K
     expect(now.estimate!.stores.hot!.outlet_degC).toBe(495.25);
     expect(now.estimate!.stores.hot!.fronts).toEqual(service.estimate!.stores.hot!.fronts);
-    expect(now.dispatch!.answers).toEqual(service.dispatch!.answers);
+    const unlimited = service.dispatch!.answers.map((one) => ({ ...one, limited_by: null }));
+    expect(now.dispatch!.answers).toEqual(unlimited);
+  });
+
+  it('tells what binds beside the stores, and what hours it limits', async () => {
+    const [unit] = new ScriptedPlant().units;
+    const span = { power_min_W: 0.5e6, power_max_W: 2.2e6, flow_min_kg_s: 1, flow_max_kg_s: 20 };
+    const limits = {
+      ...unit!.limits,
+      ...{ charge: span, discharge: span, availability: 0.95 },
+      operation: {
+        ramp_W_s: { charge: 5e3, discharge: null },
+        start: {
+          warm: { time_s: 300, energy_J: 3.6e7 },
+          cold: { time_s: 900, energy_J: 9e7 },
+          cold_after_s: 36_000,
+        },
+        change_over_s: 480,
+      },
+      connection: {
+        time_zone: 'UTC',
+        export_max_W: 2e6,
+        import_max_W: 2e6,
+        // The script begins at 06:00.
+        windows: [{ from_min: 420, to_min: 540, export_max_W: 1.5e6, import_max_W: 2e6 }],
+      },
+      outages: [
+        {
+          from_ms: Date.UTC(2026, 0, 31, 20),
+          to_ms: Date.UTC(2026, 1, 1, 4),
+          discharge_max_W: 0,
+          charge_max_W: 1e6,
+          reason: 'valve',
+        },
+      ],
+    };
+    const { get } = await app({ plant: new ScriptedPlant([{ ...unit!, limits }]) });
+    const now = unitNowSchema.strict().parse((await get('/api/units/north')).json());
+    expect(now.definition.limits).toEqual({
+      charge: {
+        ...{ power_min_MW_el: 0.5, power_max_MW_el: 2.2, flow_min_kg_s: 1, flow_max_kg_s: 20 },
+        ramp_MW_per_min: 0.3,
+      },
+      discharge: {
+        ...{ power_min_MW_el: 0.5, power_max_MW_el: 2.2, flow_min_kg_s: 1, flow_max_kg_s: 20 },
+        ramp_MW_per_min: null,
+      },
+      start: {
+        warm: { time_min: 5, energy_kWh_el: 10 },
+        cold: { time_min: 15, energy_kWh_el: 25 },
+        cold_after_h: 10,
+      },
+      change_over_min: 8,
+      connection: {
+        time_zone: 'UTC',
+        now: { export_max_MW_el: 2, import_max_MW_el: 2 },
+        next_change: {
+          ...{ time: '2026-01-31T07:00:00.000Z', export_max_MW_el: 1.5, import_max_MW_el: 2 },
+        },
+      },
+      outages: [
+        {
+          ...{ from: '2026-01-31T20:00:00.000Z', to: '2026-02-01T04:00:00.000Z' },
+          ...{ discharge_max_MW_el: 0, charge_max_MW_el: 1, reason: 'valve' },
+        },
+      ],
+      auxiliaries_running_MW_el: 0.02,
+      auxiliaries_standing_MW_el: 0.005,
+      availability: 0.95,
+    });
+    // 0.62 x 16 h at 1 MW, and less at more: the outage comes after 14 h.
+    const asked = (await get('/api/units/north/hours?power_MW=0.4,1,1.8,3')).json();
+    expect(asked.answers.map((one: { limited_by: string | null }) => one.limited_by)).toEqual([
+      'below_least_power',
+      null,
+      'connection',
+      'connection',
+    ]);
+    const head = (await get('/api/units/north/headroom?power_MW=1')).json();
+    expect(head.limits).toEqual(now.definition.limits);
   });
 
   it('counts the age of the hours from the estimate they were computed from', async () => {
@@ -127,7 +207,8 @@ describe('the good answers, each held against the schema that documents it', () 
     expect(hours.answers.map((one) => one.power_MW)).toEqual([1.2, 1.8]);
     expect(hours.time).toBe(plant.time());
     expect(hours.age_s).toBe(4);
-    expect(hours.answers).toEqual((await plant.hours('north', [1.2, 1.8])).answers);
+    const { answers } = await plant.hours('north', [1.2, 1.8]);
+    expect(hours.answers).toEqual(answers.map((one) => ({ ...one, limited_by: null })));
   });
 
   it('answers what thermocouples are worth, for the hours ahead unless a day is asked for', async () => {

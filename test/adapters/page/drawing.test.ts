@@ -5,7 +5,7 @@ import { frameOf, ringsOf, scaleOf, ticks } from '../../../src/adapters/page/dra
 import type { StoreDefinition } from '../../../src/adapters/page/lib/wire.js';
 import { COLD, HOT, unitOf } from '../http/scriptedDefinitions.js';
 
-const stores: StoreDefinition[] = definitionView(unitOf('u', 'U', [HOT, COLD])).stores;
+const stores: StoreDefinition[] = definitionView(unitOf('u', 'U', [HOT, COLD]), 0).stores;
 const [hot, cold] = stores as [StoreDefinition, StoreDefinition];
 const space = { width: 400, bedHeight: 370, beside: true };
 

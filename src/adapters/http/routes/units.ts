@@ -1,3 +1,4 @@
+import { limitedAnswers } from '../../../core/plan/limitedBy.js';
 import { HttpFault } from '../faults.js';
 import { faults, type Routes, unitOf } from '../routes.js';
 import {
@@ -24,7 +25,8 @@ async function askHours(service: PlantService, now: UnitNow, powers: readonly nu
   const unit = now.unit.id;
   try {
     const { time, answers } = await service.hours(unit, powers);
-    return { unit, time, age_s: ageOf(service.now(unit) ?? now, time), answers };
+    const age_s = ageOf(service.now(unit) ?? now, time);
+    return { unit, time, age_s, answers: limitedAnswers(now.unit, time, answers) };
   } catch (cause) {
     const why = cause instanceof Error ? cause.message : String(cause);
     const fault = new HttpFault(
@@ -112,7 +114,9 @@ export const unitRoutes: Routes = (app, { service, tuning }) => {
     },
     async (request) => {
       const now = unitOf(service, request.params.unit);
-      return { ...stateView(now), definition: definitionView(now.unit) };
+      // Before the first estimate the limits are those of this moment.
+      const at_ms = now.estimate === null ? Date.now() : Date.parse(now.estimate.time);
+      return { ...stateView(now), definition: definitionView(now.unit, at_ms) };
     },
   );
 

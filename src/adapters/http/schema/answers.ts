@@ -3,6 +3,7 @@ import { IMPLAUSIBLE_KINDS } from '../../../core/track/plausible.js';
 import { EVENT_KINDS } from '../../../core/watch/event.js';
 import { FAULT_CODES } from '../faults.js';
 import { dispatchSchema, estimateSchema, profileSchema, timeSchema } from './estimate.js';
+import { limitsSchema } from './limits.js';
 
 /** Schemas of the answers; the types of the views are made from them. */
 
@@ -76,7 +77,9 @@ export const unitStateSchema = z.object({
     .describe('Net at the connection point, positive while charging'),
 });
 
-export const unitNowSchema = unitStateSchema.extend({ definition: unitDefinitionSchema });
+export const unitNowSchema = unitStateSchema.extend({
+  definition: unitDefinitionSchema.extend({ limits: limitsSchema }),
+});
 export const streamStateSchema = unitStateSchema.extend({ profile: profileSchema.nullable() });
 
 export const unitListSchema = z.object({
@@ -173,7 +176,7 @@ export const faultSchema = z.object({
   }),
 });
 
-export type UnitDefinitionView = z.output<typeof unitDefinitionSchema>;
+export type UnitDefinitionView = UnitNowView['definition'];
 export type UnitStateView = z.output<typeof unitStateSchema>;
 export type UnitNowView = z.output<typeof unitNowSchema>;
 export type StreamStateView = z.output<typeof streamStateSchema>;

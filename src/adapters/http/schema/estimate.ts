@@ -1,5 +1,6 @@
 import { z } from 'zod';
 import { END_CAUSES, FRONT_REASONS, QUALITIES, SENSOR_VERDICTS } from '../../../core/estimate.js';
+import { COMMAND_CAUSES } from '../../../core/plan/leg.js';
 
 /** Schemas of an estimate as HTTP shows it: edge units in the keys, numbers finite or null. */
 
@@ -15,6 +16,10 @@ export const dispatchAnswerSchema = z.object({
   hours: quantilesSchema,
   energy_MWh_el: quantilesSchema,
   ends_by: z.enum(END_CAUSES).describe('The stop rule that ends the discharge'),
+  limited_by: z
+    .enum(COMMAND_CAUSES)
+    .nullable()
+    .describe('What keeps the unit from this power at some time within p10; null: nothing does'),
 });
 
 export const dispatchSchema = z.object({

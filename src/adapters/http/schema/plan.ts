@@ -1,6 +1,7 @@
 import { z } from 'zod';
 import { END_CAUSES, QUALITIES } from '../../../core/estimate.js';
 import { timeSchema } from './estimate.js';
+import { limitsSchema } from './limits.js';
 import { hoursQuery } from './questions.js';
 
 /** Schemas of questions about what lies ahead, and of their answers. */
@@ -26,6 +27,7 @@ export const answerHead = {
   stale: z.boolean(),
   quality: z.enum(QUALITIES),
   given: z.string().describe('What every figure takes for granted'),
+  limits: limitsSchema,
 };
 
 export const quantilesSchema = z
