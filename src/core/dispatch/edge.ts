@@ -5,7 +5,7 @@ import type { StoreState } from '../track/storeTracker.js';
 import type { HoursInput } from './hours.js';
 import { memberAt, type Slopes } from './members.js';
 import { BUMP_K, BUMPS, bumpWeights, type Perturbation, type Roller } from './roller.js';
-import { type RolloutResult, SWEEP_MOST_S } from './rollout.js';
+import { type RolloutResult, RULES, SWEEP_MOST_S } from './rollout.js';
 
 /** 10 % of a normal lie beyond so many sigmas. */
 const SIGMAS_10 = 1.2815515655446004;
@@ -37,14 +37,39 @@ export function quantilesAtStart(
 }
 
 /**
- * Slopes of what the rule has left at its first test that lacks most, in its sigmas; null where no
- * rule's margin follows anything that is uncertain.
+ * Within this share of the greatest flow it is looked at whether the discharge would begin: beyond,
+ * no machine and meter are so unsure (a sigma of a fifth).
  */
-function startSlopes(input: HoursInput, roller: Roller, best: RolloutResult): Slopes | null {
-  const base = roller.roll();
+const FLOW_NEAR = 0.25;
+
+/**
+ * Whether the flow forbids one plant of ten, or more, to begin where the estimate does: nothing is
+ * firm then, though the hours of those that begin are many. They are no continuation of none, as they
+ * are where an outlet decides.
+ */
+export function mayNotBegin(input: HoursInput, roller: Roller, best: RolloutResult): boolean {
+  const rule = RULES.indexOf('flow');
+  const margin = best.first_margins[rule] as number;
+  const most = input.unit.limits.discharge.flow_max_kg_s;
+  if (!(margin < FLOW_NEAR * most)) return false;
+  const slopes = startSlopes(input, roller, best, rule);
+  return slopes !== null && margin < SIGMAS_10 * memberAt(input, slopes).sigma;
+}
+
+/**
+ * Slopes of what a rule has left at its first test: of the one that lacks most, in its sigmas, or
+ * that is named; null where no such margin follows anything that is uncertain.
+ */
+function startSlopes(
+  input: HoursInput,
+  roller: Roller,
+  best: RolloutResult,
+  only?: number,
+): Slopes | null {
+  const base = roller.start();
   const from = base.end_s === 0 ? base : best;
   const along = (change: Perturbation, delta: number): number[] =>
-    Array.from(roller.roll(change).first_margins, (margin, r) => {
+    Array.from(roller.start(change).first_margins, (margin, r) => {
       const slope = (margin - (base.first_margins[r] as number)) / delta;
       return Number.isFinite(slope) ? slope : 0;
     });
@@ -56,7 +81,7 @@ function startSlopes(input: HoursInput, roller: Roller, best: RolloutResult): Sl
   let most = Number.NEGATIVE_INFINITY;
   let found: Slopes | null = null;
   from.first_margins.forEach((margin, r) => {
-    if (!Number.isFinite(margin)) return;
+    if (!Number.isFinite(margin) || (only !== undefined && r !== only)) return;
     const slopes: Slopes = {
       cells: input.models.map((model, s) => {
         const weights = Array.from({ length: BUMPS }, (_, b) => bumpWeights(model, b));

@@ -6,7 +6,7 @@ import type { StoreModel, StoreState } from '../track/storeTracker.js';
 import type { TubeState } from '../track/tube.js';
 import { unseenSigma } from '../track/unseenFlow.js';
 import { earliestQuantiles } from './earliestQuantiles.js';
-import { quantilesAtEnd, quantilesAtStart } from './edge.js';
+import { mayNotBegin, quantilesAtEnd, quantilesAtStart } from './edge.js';
 import type { Gaussian } from './gaussian.js';
 import { addProfile } from './profileCovariance.js';
 import { BUMP_K, BUMPS, createRoller, type Roller } from './roller.js';
@@ -102,7 +102,8 @@ export function computeHours(input: HoursInput, power_W: number): DispatchAnswer
   }
   const hours = earliestQuantiles(mean, covariance);
   const within = (h: number): number => Math.min(h, roller.most_s / 3600);
-  const { p90, p50, p10 } = hours;
+  const { p50, p10 } = hours;
+  const p90 = mayNotBegin(input, roller, best) ? 0 : hours.p90;
   return answer(power_W, { p90: within(p90), p50: within(p50), p10: within(p10) }, by);
 }
 

@@ -7,7 +7,13 @@ import type { TubeModel } from '../track/tube.js';
 import type { HoursInput } from './hours.js';
 import { machineSpread, partLoadFactor } from './machineSpread.js';
 import { refined } from './refine.js';
-import { type RolloutInput, type RolloutResult, type RolloutStore, rollOut } from './rollout.js';
+import {
+  type RolloutInput,
+  type RolloutResult,
+  type RolloutStore,
+  rollOut,
+  SWEEP_MOST_S,
+} from './rollout.js';
 
 const STEP_S = 300;
 /** On half cells: a little shorter, so that the bed takes most steps in two pieces, not in three. */
@@ -51,6 +57,8 @@ export interface Roller {
    * beside them takes; two rollouts differ in nothing but what is perturbed.
    */
   roll(change?: Perturbation): RolloutResult;
+  /** The same up to the first test of the rules, for its margins. */
+  start(change?: Perturbation): RolloutResult;
   /** The same on half cells, where the transfer shows: a coarse cell is as wide as a steep front. */
   rollFine(change?: Perturbation): RolloutResult;
   /** The best there is, with the layers at the wall on half cells: see `refined`. */
@@ -101,13 +109,17 @@ export function createRoller(input: HoursInput, power_W: number): Roller {
     step_s: number,
     on: readonly (readonly BedWork[])[],
     change: Perturbation,
-  ): RolloutResult =>
-    rollOut({ ...common, step_s, stores: of, workFactor: Math.exp(log + (change.work ?? 0)) }, on);
+    until_s = common.most_s,
+  ): RolloutResult => {
+    const workFactor = Math.exp(log + (change.work ?? 0));
+    return rollOut({ ...common, step_s, stores: of, workFactor, most_s: until_s }, on);
+  };
   const fineWorks = worksOf(2);
   return {
     most_s,
     known_to_s: KNOWN_TO * most_s,
     roll: (change = {}) => go(changed(bare, change), STEP_S, works, change),
+    start: (change = {}) => go(changed(bare, change), STEP_S, works, change, SWEEP_MOST_S),
     rollFine: (change = {}) =>
       go(changed(bare, change).map(refined), FINE_STEP_S, fineWorks, change),
     best: () => go(whole.map(refined), FINE_STEP_S, fineWorks, {}),

@@ -58,6 +58,18 @@ describe('hours at an edge', () => {
     expect(Math.abs(below(drawn, p[2] as number) - 0.9)).toBeLessThan(NEAR);
   });
 
+  it.each([
+    [1.005, true],
+    [1.04, true],
+    [1.3, false],
+  ])('are not firm where the flow may forbid to begin (%d of the flow needed)', (share, may) => {
+    const { p, drawn } = both(withFlowMost(share * firstFlow()));
+    const never = drawn.filter((h) => h === 0).length / COUNT;
+    expect(never > 0.1).toBe(may);
+    expect(p[0] === 0).toBe(may);
+    expect(p[1]).toBeGreaterThan(0);
+  });
+
   it('are none where hardly any plant may begin', () => {
     const { p, drawn } = both(withFlowMost(0.8 * firstFlow()));
     expect(drawn.filter((h) => h > 0).length / COUNT).toBeLessThan(0.02);
