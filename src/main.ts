@@ -1,6 +1,7 @@
 import { Command, CommanderError } from 'commander';
 import { register as registerCheck } from './commands/check.js';
 import { register as registerDemo } from './commands/demo.js';
+import { register as registerHeadroom } from './commands/headroom.js';
 import { closingHelp } from './commands/help.js';
 import { register as registerHours } from './commands/hours.js';
 import { register as registerReplay } from './commands/replay.js';
@@ -15,6 +16,7 @@ const COMMANDS = [
   registerDemo,
   registerReplay,
   registerHours,
+  registerHeadroom,
   registerTune,
   registerSensors,
   registerCheck,

@@ -5,6 +5,7 @@ import { type LimitedAnswer, limitedAnswers } from '../core/plan/limitedBy.js';
 import type { Scan } from '../core/scan/scan.js';
 import { advance, startUnit } from '../core/unit.js';
 import { RockhourError } from '../errors.js';
+import { nothingBefore, onlyUnitOf } from './aheadState.js';
 import { askDaemon } from './daemonAnswer.js';
 import { loadUnit } from './site.js';
 import { table } from './table.js';
@@ -63,32 +64,6 @@ async function fromRecording(options: HoursOptions): Promise<HoursAnswer> {
     state_of_charge: estimate.state_of_charge,
     answers: limitedAnswers(unit, estimate.time, estimate.dispatch ?? []),
   };
-}
-
-function nothingBefore(
-  recording: string,
-  at: string | undefined,
-  begins_ms: number | null,
-): RockhourError {
-  if (begins_ms === null) {
-    return new RockhourError('RECORDING_MALFORMED', `${recording} has a header but no rows`, {
-      advice: 'Hours need at least one scan.',
-    });
-  }
-  const begins = new Date(begins_ms).toISOString();
-  return new RockhourError('USAGE', `--at is ${at}, but ${recording} begins at ${begins}`, {
-    advice: 'Name a time within the recording.',
-  });
-}
-
-/** The only unit of a running daemon; with several one has to be named. */
-export async function onlyUnitOf(url: string): Promise<string> {
-  const { units } = (await askDaemon(url, '/api/units')) as { units: { unit: string }[] };
-  if (units.length === 1 && units[0] !== undefined) return units[0].unit;
-  throw new RockhourError(
-    'UNIT_UNKNOWN',
-    `the daemon has several units and none was named: ${units.map(({ unit }) => unit).join(', ')}`,
-  );
 }
 
 async function fromDaemon(url: string, options: HoursOptions): Promise<HoursAnswer> {
