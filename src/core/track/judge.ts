@@ -71,6 +71,7 @@ export function judgeSensor(memory: SensorMemory, evidence: SensorEvidence): Jud
       set(memory, 'open', time_ms, 'no reading while others of the store deliver', 0);
     }
     memory.outside = 0;
+    followMovement(memory, evidence);
     return 'leave_out';
   }
   if (memory.verdict === 'open') clear(memory);

@@ -48,8 +48,9 @@ export interface SensorMemory extends Movement, Usual, Start {
   /** Until when the junction has not followed a change of the flow; the lag then [m]. */
   unsettled_ms: number;
   lag_m: number;
-  /** Greatest lag of late [m]: what its own share of the gas may have put into its place. */
-  reach_m: number;
+  /** Greatest lags of late, with and against the charge [m]: what its own share of the gas may have put into its place. */
+  reachCharge_m: number;
+  reachDischarge_m: number;
   /** Scans in a row that fit the gas at the top of the store, not the rock. */
   inGas: number;
   /** Scans in a row in which it and another one moved as if they were swapped, and which other. */
@@ -85,7 +86,8 @@ export function freshSensor(): SensorMemory {
     groupEvidence: '',
     unsettled_ms: 0,
     lag_m: Number.NaN,
-    reach_m: 0,
+    reachCharge_m: 0,
+    reachDischarge_m: 0,
     inGas: 0,
     swapScans: 0,
     swapWith: -1,
@@ -96,17 +98,21 @@ export function freshSensor(): SensorMemory {
     modelled_K: 0,
     sinceRead_K: 0,
     sinceModelled_K: 0,
+    unread_K: 0,
     firstRead_K: Number.NaN,
     firstRock_K: Number.NaN,
     recent_K: Number.NaN,
     usual_K: Number.NaN,
     usualRock_K: Number.NaN,
     usualSigma_K: Number.NaN,
+    usualPlace_K: Number.NaN,
+    passing: 0,
     usualAge_s: 0,
     beyond_s: 0,
     low_K: Number.NaN,
     high_K: Number.NaN,
-    guessed_m: 0,
+    below_m: 0,
+    above_m: 0,
   };
 }
 
@@ -140,6 +146,10 @@ export interface SensorEvidence {
   readonly supported: boolean;
   /** One beside it has moved to the same side against its rock: the profile is off, not the sensor. */
   readonly movesAlike: boolean;
+  /** The profile there is still the guess of its start, between thermocouples; see judgeStart. */
+  readonly guessed: boolean;
+  /** Gas flows: what stands in a front is passed by it. */
+  readonly flowing: boolean;
   /** Temperature of the gas that enters at the top, where this is its topmost sensor; else NaN [K]. */
   readonly topGas_K: number;
 }

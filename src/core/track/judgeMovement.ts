@@ -19,6 +19,8 @@ export interface Movement {
   /** The same since the reading last leapt against the rock within one scan, as a fault does when it begins. */
   sinceRead_K: number;
   sinceModelled_K: number;
+  /** Steps of the rock by the model in scans without a reading, since the last one [K]. */
+  unread_K: number;
   /** Reading and rock when another type's table first explained the reading [K]; NaN while none does. */
   firstRead_K: number;
   firstRock_K: number;
@@ -47,12 +49,22 @@ export function followMovement(
     memory.read_K = memory.modelled_K = 0;
     memory.sinceRead_K = memory.sinceModelled_K = 0;
     memory.before_K = Number.NaN;
+    memory.unread_K = 0;
     return;
   }
   const keep = Math.exp(-evidence.dt_s / FADE_S);
+  const step = evidence.predicted_K - memory.expected_K;
+  if (!Number.isFinite(evidence.value_K)) {
+    memory.read_K *= keep;
+    memory.modelled_K *= keep;
+    memory.sinceRead_K *= keep;
+    memory.sinceModelled_K *= keep;
+    memory.unread_K = keep * memory.unread_K + (Number.isFinite(step) ? step : 0);
+    return;
+  }
   if (Number.isFinite(memory.before_K) && Number.isFinite(memory.expected_K)) {
     const read = evidence.value_K - memory.before_K;
-    const modelled = evidence.predicted_K - memory.expected_K;
+    const modelled = keep * memory.unread_K + step;
     const leapt = Math.abs(read - modelled) > LEAP_SIGMAS * evidence.sigma_K;
     memory.read_K = keep * memory.read_K + read;
     memory.modelled_K = keep * memory.modelled_K + modelled;
@@ -60,6 +72,7 @@ export function followMovement(
     memory.sinceModelled_K = leapt ? 0 : keep * memory.sinceModelled_K + modelled;
   }
   memory.before_K = evidence.value_K;
+  memory.unread_K = 0;
 }
 
 /** The reading has followed the rock where that moved: within a third, as fronts come early or late. */
@@ -82,12 +95,18 @@ const AGAINST = [0.5, 10] as const;
 /** Movement that makes it a suspect, and that shows it [K]: the reading then stands off by twice as much. */
 const SUSPECT_MOVES_K = 1.5;
 const MIRROR_MOVES_K = 2;
+/** Movements that both are no error of the estimate nor the difference of two noisy readings, in sigmas. */
+const MIRROR_SIGMAS = 3;
 
 /**
  * Reversed wires: the voltage changes sign about the cold junction, so reading + rock = 2 T_junction
  * and the reading moves against the rock, by as much but for the bend of the type's curve. Either
  * the movement shows it, or a difference so great that an offset would hardly be its mirror image.
  *
+ * A rock that is hardly known moves by chance.
+ *
+ * @param sigma_K of the innovation
+ * @param noise_K of the reading alone
  * @param moving false where the movement is no evidence
  */
 export function mirrored(
@@ -95,6 +114,8 @@ export function mirrored(
   value_K: number,
   rock_K: number,
   deadband_K: number,
+  sigma_K: number,
+  noise_K: number,
   moving: boolean,
 ): 'no' | 'suspect' | 'yes' {
   const middle = (value_K + rock_K) / 2;
@@ -105,7 +126,8 @@ export function mirrored(
   if (apart > MIRRORED_K && beside <= spread / 2) return 'yes';
   const { sinceRead_K, sinceModelled_K } = memory;
   const moved = Math.abs(sinceModelled_K) - 2 * deadband_K;
-  if (!moving || moved < SUSPECT_MOVES_K) return 'no';
+  if (!moving || moved < Math.max(SUSPECT_MOVES_K, MIRROR_SIGMAS * sigma_K)) return 'no';
+  if (Math.abs(sinceRead_K) < MIRROR_SIGMAS * Math.SQRT2 * noise_K + deadband_K) return 'no';
   const against = -sinceRead_K / sinceModelled_K;
   if (!(against > AGAINST[0] && against < AGAINST[1])) return 'no';
   return moved < MIRROR_MOVES_K ? 'suspect' : 'yes';

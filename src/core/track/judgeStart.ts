@@ -14,12 +14,26 @@ export interface Start {
   /** What the profile may be on either side of it, as far as the next thermocouples [K]. */
   low_K: number;
   high_K: number;
-  /** Way that the front still has to go until the guess has passed it [m]. */
-  guessed_m: number;
+  /** Way that rock's temperature still has to come from below and above in x until the guess has passed [m]. */
+  below_m: number;
+  above_m: number;
 }
 
 /** What leaps by more than this share of what was guessed in one scan is the sensor, not a front. */
 const LEAP_SHARE = 0.1;
+/** So near to the entering gas it may have been left by the bed [K]. */
+const GAS_K = 8;
+
+/**
+ * Way of a guess that has yet to pass a sensor in the direction of the flow [m]; 0 = none. At rest
+ * there is one until rock from either side has come.
+ */
+export function guessLeft(memory: Start, drive: TubeDrive | null): number {
+  if (drive === null || drive.massFlux_kg_m2s === 0) {
+    return Math.min(memory.below_m, memory.above_m);
+  }
+  return drive.massFlux_kg_m2s > 0 ? memory.below_m : memory.above_m;
+}
 
 /**
  * Widens a tube where readings that its guessed profile may have had stand outside the gate: by what
@@ -32,25 +46,37 @@ export function widenGuesses(
   state: StoreState,
   work: JudgeWork,
   drive: TubeDrive | null,
+  time_ms: number,
 ): boolean {
   let changed = false;
   // Other rock comes only with the gas.
   if (drive === null || drive.massFlux_kg_m2s === 0) return false;
   for (const c of work.candidates) {
     const memory = state.sensors[c.tube]?.[c.sensor] as SensorMemory;
-    if (memory.guessed_m === 0 || memory.outside > 0 || !isBelieved(memory)) continue;
+    const guess_m = guessLeft(memory, drive);
+    if (guess_m === 0 || memory.outside > 0 || !isBelieved(memory)) continue;
     const off = Math.abs(innovation(c));
     const room = GATE_SIGMAS * c.sigma_K;
     if (!(off > room)) continue;
+    const read = c.value_K;
     const leap = Math.max(room, LEAP_SHARE * (memory.high_K - memory.low_K));
-    if (off > leap || !(Math.abs(c.value_K - memory.before_K) < leap)) continue;
-    if (c.value_K < memory.low_K - room || c.value_K > memory.high_K + room) continue;
+    // Right after the flow began nothing was used, and the rock went on meanwhile.
+    const leapt = Number.isFinite(memory.before_K)
+      ? Math.abs(read - memory.before_K) > leap
+      : time_ms < memory.unsettled_ms;
+    if (leapt || Math.abs(read - drive.inlet_K) < GAS_K) continue;
+    if (read < memory.low_K - room || read > memory.high_K + room) continue;
     const tube = model.tubes[c.tube] as TubeModel;
-    widen(tube, state.tubes[c.tube] as TubeState, c.sensor, off, memory.guessed_m / 2);
+    widen(tube, state.tubes[c.tube] as TubeState, c.sensor, off, guess_m / 2);
     changed = true;
   }
   return changed;
 }
+
+/** Thermocouples as near as this to one another draw a front as it is: eight along the bed. */
+const DENSE_SHARE = 1 / 8;
+/** Heat capacity and flow are known to a fifth before anything was learned. */
+const ROOM = 1.2;
 
 /** Call before judging: notes the start, and how far the front has gone since. */
 export function followStart(
@@ -71,8 +97,9 @@ export function followStart(
   const travel =
     (Math.abs(drive.massFlux_kg_m2s) * drive.dt_s * (tables.fluidHeatCapacity[s] as number)) /
     (tables.heatCapacity[s] as number);
+  const side = drive.massFlux_kg_m2s > 0 ? 'below_m' : 'above_m';
   for (const sensors of state.sensors) {
-    for (const memory of sensors) memory.guessed_m = Math.max(0, memory.guessed_m - travel);
+    for (const memory of sensors) memory[side] = Math.max(0, memory[side] - travel);
   }
 }
 
@@ -89,15 +116,16 @@ function noteStart(
   const x = place(c.sensor);
   memory.low_K = c.reading.value_K;
   memory.high_K = c.reading.value_K;
-  memory.guessed_m = 0;
   for (const side of [-1, 1]) {
     const next = c.sensor + side;
     const outermost = next < 0 || next >= thermocouples.length;
     const beside = (work.candidates[i + side] as Candidate | undefined)?.reading.value_K as number;
-    const values = outermost ? [cold, hot] : [beside];
-    memory.low_K = Math.min(memory.low_K, ...values);
-    memory.high_K = Math.max(memory.high_K, ...values);
+    memory.low_K = Math.min(memory.low_K, outermost ? cold : beside);
+    memory.high_K = Math.max(memory.high_K, outermost ? hot : beside);
     const end = side < 0 ? x : bed.length_m - x;
-    memory.guessed_m = Math.max(memory.guessed_m, outermost ? end : Math.abs(place(next) - x));
+    const gap = outermost ? end : Math.abs(place(next) - x);
+    const guess = gap < DENSE_SHARE * bed.length_m ? 0 : ROOM * gap;
+    if (side < 0) memory.below_m = guess;
+    else memory.above_m = guess;
   }
 }

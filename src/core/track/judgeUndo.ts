@@ -13,6 +13,8 @@ const BENT_MOST_K = 5;
  *   x <- x + c o/(s^2 - P_oo),  P <- P + c c'/(s^2 - P_oo),   c = P e_o, s the prior's sigma,
  *
  * which leaves its readings no say in the level of the profile; the offset itself is then the prior's.
+ * After it the same with its place, which in the front takes on what the offset does not; a place that
+ * a turn of the flow has loosened beyond its prior keeps its variance and is only cut off from the rest.
  * What it may have bent beyond that, as it did not stay constant, is added as one common doubt around it.
  */
 export function forgetSensor(
@@ -22,17 +24,23 @@ export function forgetSensor(
   off_K: number,
 ): void {
   const { layout, estimator } = model;
-  const { size, cells } = layout;
-  const own = layout.offset + sensor;
+  forget(model, state, layout.offset + sensor, estimator.offset_sigma_K ** 2);
+  forget(model, state, layout.position + sensor, estimator.position_sigma_m ** 2);
+  widen(model, state, sensor, Math.min(BENT_MOST_K, BENT_SHARE * Math.abs(off_K)), BENT_LENGTH_M);
+}
+
+/** Takes back what one further state, of which `prior` is the variance, has told all others. */
+function forget(model: TubeModel, state: TubeState, own: number, prior: number): void {
+  const { size, cells } = model.layout;
   const p = state.covariance;
-  const prior = estimator.offset_sigma_K ** 2;
-  const left = prior - (p[own * (size + 1)] as number);
+  const variance = p[own * (size + 1)] as number;
+  const left = prior - variance;
   if (left > 0.05 * prior) {
-    const offset = state.further[own - cells] as number;
+    const value = state.further[own - cells] as number;
     const temperature = tubeTemperatures(model, state, new Float64Array(cells));
     const column = Float64Array.from(p.subarray(own * size, own * size + size));
     for (let i = 0; i < size; i++) {
-      const move = ((column[i] as number) * offset) / left;
+      const move = ((column[i] as number) * value) / left;
       if (i < cells) temperature[i] = (temperature[i] as number) + move;
       else state.further[i - cells] = (state.further[i - cells] as number) + move;
       for (let j = 0; j < size; j++) {
@@ -44,8 +52,7 @@ export function forgetSensor(
   }
   state.further[own - cells] = 0;
   for (let j = 0; j < size; j++) p[own * size + j] = p[j * size + own] = 0;
-  p[own * (size + 1)] = prior;
-  widen(model, state, sensor, Math.min(BENT_MOST_K, BENT_SHARE * Math.abs(off_K)), BENT_LENGTH_M);
+  p[own * (size + 1)] = Math.max(prior, variance);
 }
 
 /**

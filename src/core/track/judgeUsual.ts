@@ -16,6 +16,10 @@ export interface Usual {
   usualRock_K: number;
   /** Sigma of the rock's temperature with it [K]. */
   usualSigma_K: number;
+  /** What errors of its place made while it was learned, one sigma [K]. */
+  usualPlace_K: number;
+  /** 1 while it stands in a front that gas carries past, else 0. */
+  passing: number;
   /** Time over which it was learned [s]. */
   usualAge_s: number;
   /** Until when one beside it that was found out may have bent the profile here. */
@@ -37,6 +41,8 @@ interface UsualEvidence {
   readonly groupSigma_K: number;
   readonly deadband_K: number;
   readonly movesAlike: boolean;
+  readonly guessed: boolean;
+  readonly flowing: boolean;
 }
 
 const RECENT_S = 600;
@@ -62,19 +68,25 @@ export function followUsual(memory: Usual, evidence: UsualEvidence): void {
   const d = evidence.value_K - rock;
   const { dt_s } = evidence;
   if (!Number.isFinite(evidence.rockSigma_K)) return;
-  // While its profile is in doubt, and then until the front has passed, nothing is usual yet.
+  // While its profile is in doubt or a guess, and then until the front has passed, nothing is usual yet.
   const until = Math.max(memory.doubt_ms, memory.guess_ms);
   const doubtful =
-    evidence.time_ms < until || (until > 0 && memory.usualAge_s < LEARN_S && inFront(evidence));
+    evidence.time_ms < until ||
+    evidence.guessed ||
+    ((until > 0 || evidence.flowing) && memory.usualAge_s < LEARN_S && inFront(evidence));
   if (Number.isNaN(memory.usual_K) || doubtful) {
     memory.usual_K = d;
     memory.recent_K = d;
     memory.usualRock_K = rock;
     memory.usualSigma_K = evidence.rockSigma_K;
+    memory.usualPlace_K = evidence.placeSigma_K;
     memory.usualAge_s = 0;
     return;
   }
-  if (Number.isNaN(memory.recent_K)) memory.recent_K = d;
+  // What it deviated by in the front is over with the front.
+  const over = memory.passing === 1 && !passes(evidence);
+  memory.passing = passes(evidence) ? 1 : 0;
+  if (Number.isNaN(memory.recent_K) || over) memory.recent_K = d;
   memory.recent_K += (d - memory.recent_K) * (1 - Math.exp(-dt_s / RECENT_S));
   memory.usualAge_s += dt_s;
   // While it is being learned, what is now known better than before takes the place of that.
@@ -86,6 +98,7 @@ export function followUsual(memory: Usual, evidence: UsualEvidence): void {
   const off = memory.recent_K - memory.usual_K;
   memory.usual_K += share * (share > slow ? off : Math.max(-FOLLOW_K, Math.min(FOLLOW_K, off)));
   memory.usualRock_K += share * (rock - memory.usualRock_K);
+  memory.usualPlace_K += share * (evidence.placeSigma_K - memory.usualPlace_K);
   memory.usualSigma_K =
     share > slow && better > 0
       ? evidence.rockSigma_K
@@ -95,6 +108,9 @@ export function followUsual(memory: Usual, evidence: UsualEvidence): void {
 /** In the front an error of the place reads like any other: nothing is learned there. */
 const inFront = (evidence: UsualEvidence): boolean =>
   evidence.placeSigma_K > evidence.offsetSigma_K / 2;
+
+/** While gas flows a front passes within hours: what then remains is the sensor's. */
+const passes = (evidence: UsualEvidence): boolean => evidence.flowing && inFront(evidence);
 
 /** In its first hour, and while the bed tells little of it: not twice as well as its class does. */
 function isLearning(memory: Usual, evidence: UsualEvidence): boolean {
@@ -122,12 +138,14 @@ export function usualFault(
     MODEL_K ** 2;
   // Two estimates of one deviation, of which the better holds all that the other does.
   const learned = Math.abs(evidence.rockSigma_K ** 2 - memory.usualSigma_K ** 2);
-  const allowed = Math.sqrt(learned + swing + (gain * (rock - memory.usualRock_K)) ** 2);
+  const allowed = Math.sqrt(
+    learned + swing + memory.usualPlace_K ** 2 + (gain * (rock - memory.usualRock_K)) ** 2,
+  );
   const beyondClass = Math.sqrt(
     evidence.rockSigma_K ** 2 + swing + evidence.offsetSigma_K ** 2 + (gain * (rock - 273.15)) ** 2,
   );
   const drifts = Math.abs(moved) > USUAL_SIGMAS * allowed;
-  const off = Math.abs(memory.recent_K) > USUAL_SIGMAS * beyondClass;
+  const off = Math.abs(memory.recent_K) > USUAL_SIGMAS * beyondClass && !passes(evidence);
   if (isLearning(memory, evidence) || !((drifts && !inFront(evidence)) || off)) {
     memory.beyond_s = 0;
     return null;

@@ -27,7 +27,8 @@ export function judgeWiring(
   // A drift that goes on may run against the rock by chance.
   const slow = verdict === 'drifting' && memory.beyond_s > 0;
   const moving = !slow || time_ms - memory.since_ms < DRIFT_MS;
-  const mirror = mirrored(memory, value, rock, evidence.deadband_K, moving);
+  const noise = evidence.noiseSigma_K ?? 0;
+  const mirror = mirrored(memory, value, rock, evidence.deadband_K, sigma, noise, moving);
   memory.miswired = mirror === 'yes' ? memory.miswired + 1 : 0;
   const shown = `reads ${(value - 273.15).toFixed(1)} degC where the rock is at ${(rock - 273.15).toFixed(1)} degC`;
   if (memory.miswired >= MISWIRED_SCANS) {
@@ -35,7 +36,8 @@ export function judgeWiring(
     rename(memory, 'reversed', time_ms, text, innovation);
   }
   if (mirror !== 'no') return true;
-  const types = misreadTypes(value, rock, sigma);
+  // Nor is a rock that is not yet known any evidence of another table.
+  const types = evidence.guessed ? null : misreadTypes(value, rock, sigma);
   if (types === null) memory.firstRock_K = Number.NaN;
   else if (Number.isNaN(memory.firstRock_K)) {
     memory.firstRock_K = rock;

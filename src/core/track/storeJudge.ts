@@ -6,6 +6,7 @@ import {
   type SensorEvidence,
   type SensorMemory,
 } from './judge.js';
+import { guessLeft } from './judgeStart.js';
 import { judgeSwaps } from './judgeSwap.js';
 import { type Candidate, innovation, type JudgeWork } from './judgeWork.js';
 import type { AcceptedReading } from './measurement.js';
@@ -45,15 +46,18 @@ export function judgeAll(
       noiseSigma_K: Math.sqrt(c.variance_K2),
       rock_K: c.rock_K,
       rockSigma_K: c.rockSigma_K,
-      placeSigma_K:
-        Math.hypot(tube.estimator.position_sigma_m, SHARE_SIGMA * memoryOf(state, c).reach_m) *
-        Math.abs(c.reading.slope_K_m),
+      placeSigma_K: Math.hypot(
+        tube.estimator.position_sigma_m * c.reading.slope_K_m,
+        SHARE_SIGMA * gasApart(model, memoryOf(state, c), c, drive),
+      ),
       offsetSigma_K: tube.estimator.offset_sigma_K,
       groupSigma_K: tube.estimator.group_offset_sigma_K,
       deadband_K: model.deadbands_K[c.tube]?.[c.sensor] ?? 0,
       range_K,
       supported: isSupported(state, work, c),
       movesAlike: movesAlike(state, work, c),
+      guessed: guessLeft(memoryOf(state, c), drive) > 0,
+      flowing: drive !== null && drive.massFlux_kg_m2s !== 0,
       topGas_K: topGas(model, state, c, drive),
     };
     return judgeSensor(memoryOf(state, c), evidence);
@@ -72,6 +76,29 @@ export function judgeAll(
     accepted.push({ tube, sensor, reading, v, innovation_K, variance_K2 });
   });
   return accepted;
+}
+
+/**
+ * How far the gas at a junction may be from its rock [K]: the rock a lag upstream, to first order, and
+ * where the flow has turned, what was taken for its place in the other direction as well;
+ * within a few lags of the inlet the gas still has what it entered with, e^(-z/l) of the difference.
+ */
+export function gasApart(
+  model: StoreModel,
+  memory: SensorMemory,
+  c: Candidate,
+  drive: TubeDrive | null,
+): number {
+  const reach = memory.reachCharge_m + memory.reachDischarge_m;
+  const behind = reach * Math.abs(c.reading.slope_K_m);
+  const lag = Math.abs(c.reading.lag_m);
+  if (drive === null || drive.massFlux_kg_m2s === 0 || !(lag > 0)) return behind;
+  const { string } = model.tubes[c.tube] as TubeModel;
+  const x = string.thermocouples[c.sensor]?.position_m as number;
+  const from = drive.massFlux_kg_m2s > 0 ? x : model.store.bed.length_m - x;
+  const entering = Math.abs(drive.inlet_K - c.rock_K) * Math.exp(-from / lag);
+  // Without a reading of the inlet nothing is known of it.
+  return Number.isFinite(entering) ? Math.max(behind, entering) : behind;
 }
 
 /** Deviation to the same side by this many sigmas bears another sensor out. */

@@ -126,6 +126,8 @@ export function rememberStart(
         range_K: plausibleRange(model),
         supported: false,
         movesAlike: false,
+        guessed: false,
+        flowing: false,
         topGas_K: Number.NaN,
       });
     }

@@ -72,7 +72,7 @@ export function updateStore(
     restart(model, state, time_ms, REACQUIRE_INFLATION);
     return 'reacquired';
   }
-  if (widenGuesses(model, state, work, drive)) predictReadings(model, state, work);
+  if (widenGuesses(model, state, work, drive, time_ms)) predictReadings(model, state, work);
   const before = candidates.map((c) => memoryOf(state, c).verdict);
   const accepted = judgeAll(model, state, work, drive, time_ms);
   model.tubes.forEach((tube, k) => {
@@ -187,5 +187,7 @@ function followLag(memory: SensorMemory, c: Candidate, time_ms: number, dt_s: nu
     memory.unsettled_ms = time_ms + SETTLE_MS;
   }
   memory.lag_m = lag_m;
-  memory.reach_m = Math.max(Math.abs(lag_m), memory.reach_m * Math.exp(-dt_s / REACH_S));
+  const keep = Math.exp(-dt_s / REACH_S);
+  memory.reachCharge_m = Math.max(lag_m, memory.reachCharge_m * keep);
+  memory.reachDischarge_m = Math.max(-lag_m, memory.reachDischarge_m * keep);
 }

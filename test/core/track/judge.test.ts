@@ -36,6 +36,8 @@ function watched(defaults: Partial<SensorEvidence> = {}) {
       range_K: [200, 900],
       supported: false,
       movesAlike: false,
+      guessed: false,
+      flowing: false,
       topGas_K: Number.NaN,
       ...defaults,
       ...over,

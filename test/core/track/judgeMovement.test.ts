@@ -50,7 +50,7 @@ describe('reversed wires', () => {
           const read = (rock: number): number => 2 * junction - rock;
           const memory = follow(path, read);
           const rock = path.at(-1) as number;
-          expect(mirrored(memory, read(rock), rock, 0, true)).toBe('yes');
+          expect(mirrored(memory, read(rock), rock, 0, SIGMA, SIGMA, true)).toBe('yes');
         },
       ),
       { seed: 1, numRuns: 100 },
@@ -64,7 +64,15 @@ describe('reversed wires', () => {
           const at = (t: number): number => millivoltFromCelsius(type, t);
           const read = celsiusFromMillivolt(type, -(at(rock) - at(junction)), junction);
           if (typeof read !== 'number') continue;
-          const judged = mirrored(freshSensor(), read + 273.15, rock + 273.15, 0, true);
+          const judged = mirrored(
+            freshSensor(),
+            read + 273.15,
+            rock + 273.15,
+            0,
+            SIGMA,
+            SIGMA,
+            true,
+          );
           expect(judged, `${type} ${rock} ${junction}`).toBe('yes');
         }
       }
@@ -83,18 +91,40 @@ describe('reversed wires', () => {
           const read = (rock: number, n: number): number => rock + offset + (drift * n) / 60;
           const memory = follow(path, read);
           const rock = path.at(-1) as number;
-          expect(mirrored(memory, read(rock, 60), rock, 0, true)).toBe('no');
+          expect(mirrored(memory, read(rock, 60), rock, 0, SIGMA, SIGMA, true)).toBe('no');
         },
       ),
       { seed: 2, numRuns: 100 },
     );
   });
 
+  it('are no sound sensor where the rock is hardly known, nor where the reading moves by its noise', () => {
+    const path = foot(298, 6);
+    const memory = follow(path, (rock) => 2 * 305 - rock);
+    const rock = path.at(-1) as number;
+    const judged = (sigma: number, noise: number) =>
+      mirrored(memory, 2 * 305 - rock, rock, 0, sigma, noise, true);
+    expect(judged(1, 0.5)).toBe('yes');
+    expect(judged(6, 0.5)).toBe('no');
+    expect(judged(1, 2)).toBe('no');
+  });
+
+  it('are told alike where most scans bring no reading', () => {
+    const path = foot(298, 6);
+    const every = follow(path, (rock) => rock);
+    const few = follow(path, (rock, n) => (n % 5 === 0 ? rock : Number.NaN));
+    // What moved between two readings fades only from the second one on: by five minutes of three hours.
+    const most = (300 / (3 * 3600)) * 6;
+    expect(Math.abs(few.sinceRead_K - every.sinceRead_K)).toBeLessThan(most);
+    expect(Math.abs(few.sinceModelled_K - every.sinceModelled_K)).toBeLessThan(most);
+    expect(few.sinceModelled_K).toBeGreaterThan(4);
+  });
+
   it('are no offset of 15 K that came with a leap: what moved before counts no more', () => {
     const path = [...foot(290, 8), ...foot(298, 5)];
     const memory = follow(path, (rock, n) => (n > 60 ? rock - 15 : rock));
     const rock = path.at(-1) as number;
-    expect(mirrored(memory, rock - 15, rock, 0, true)).toBe('no');
+    expect(mirrored(memory, rock - 15, rock, 0, SIGMA, SIGMA, true)).toBe('no');
   });
 });
 

@@ -10,13 +10,16 @@ interface Scene {
   /** Rock there [K] after so many hours, and what the sensor reads too much [K]. */
   readonly rock: (hours: number) => number;
   readonly error: (hours: number, rock: number) => number;
-  readonly placeSigma_K?: number;
+  readonly placeSigma_K?: number | ((hours: number) => number);
   readonly rockSigma_K?: number;
+  readonly guessed?: (hours: number) => boolean;
+  readonly flowing?: boolean;
   readonly seed?: number;
 }
 
 /** Judges a day; hours at which it was named and how, or null. */
-function day({ rock, error, placeSigma_K = 0.05, rockSigma_K = 0.3, seed = 7 }: Scene) {
+function day(scene: Scene) {
+  const { rock, error, placeSigma_K = 0.05, rockSigma_K = 0.3, seed = 7 } = scene;
   const memory = freshSensor();
   const random = mulberry(seed);
   for (let n = 0; n < 24 * SCANS_H; n++) {
@@ -28,11 +31,13 @@ function day({ rock, error, placeSigma_K = 0.05, rockSigma_K = 0.3, seed = 7 }: 
       value_K: rock_K + error(hours, rock_K) + 0.5 * (random() - 0.5),
       rock_K,
       rockSigma_K,
-      placeSigma_K,
+      placeSigma_K: typeof placeSigma_K === 'number' ? placeSigma_K : placeSigma_K(hours),
       offsetSigma_K: 1,
       groupSigma_K: 0.5,
       deadband_K: 0,
       movesAlike: false,
+      guessed: scene.guessed?.(hours) ?? false,
+      flowing: scene.flowing ?? false,
     };
     followUsual(memory, evidence);
     const fault = usualFault(memory, evidence);
@@ -76,6 +81,31 @@ describe('a sound sensor', () => {
   it('is not judged while the bed tells no more of it than its class does', () => {
     const error = (h: number): number => Math.min(3, h / 2);
     expect(day({ rock: STEADY, error, rockSigma_K: 0.8 })).toBeNull();
+  });
+});
+
+describe('a profile that misleads', () => {
+  it('teaches nothing while it is a guess: what was off by 6 K then has not drifted', () => {
+    const error = (h: number): number => (h < 3 ? -6 : 0);
+    expect(day({ rock: STEADY, error, guessed: (h) => h < 3 })).toBeNull();
+    expect(day({ rock: STEADY, error })?.verdict).toMatch(/drifting|offset/);
+  });
+
+  it('is no evidence in a front that passes, however far off; where it stands, it is', () => {
+    const scene = {
+      rock: STEADY,
+      error: (h: number) => (h < 2 || h > 6 ? 0 : 15),
+      placeSigma_K: (h: number) => (h < 2 || h > 6 ? 0.05 : 3),
+    };
+    expect(day({ ...scene, flowing: true })).toBeNull();
+    expect(day({ ...scene, flowing: false })?.hours).toBeLessThan(3);
+  });
+
+  it('leaves what was learned near a front as uncertain as its place made it', () => {
+    // Learned at half a class from the front, 2.5 K off: less than 4 sigma of both errors.
+    const error = (h: number): number => (h < 4 ? 2.5 : 0);
+    const near = (h: number): number => (h < 4 ? 0.45 : 0.02);
+    expect(day({ rock: STEADY, error, placeSigma_K: near, flowing: true })).toBeNull();
   });
 });
 
