@@ -260,7 +260,7 @@ function stepRun(
   const limits = model.unit.limits;
   const most = limits[direction].flow_max_kg_s;
   const drop = worstDrop(model, ahead, Math.min(needed, most));
-  const margins = marginsOf(model, direction, outlets, needed, drop, work);
+  const margins = marginsOf(model, direction, outlets, power_W, drop, work);
   const elapsed = t - run.from_s;
   const plena = ahead.ends_K.map((ends) => ends[end]);
   if (
@@ -305,7 +305,7 @@ function marginsOf(
   model: AheadModel,
   direction: Direction,
   outlets: { hot_K: number; cold_K: number | null },
-  flow_kg_s: number,
+  power_W: number,
   drop_Pa: number,
   work_J_kg: number,
 ): number[] {
@@ -323,7 +323,8 @@ function marginsOf(
   return [
     hot,
     cold,
-    Number.isFinite(flow_kg_s) ? most - flow_kg_s : -1,
+    // By power, which is linear in the work: the flow runs away where the work goes to nothing.
+    powerOf(model, direction, most, work_J_kg) - power_W,
     limits.pressure_drop_max_Pa === null ? Number.NaN : limits.pressure_drop_max_Pa - drop_Pa,
     work_J_kg,
   ];

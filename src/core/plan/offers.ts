@@ -117,7 +117,7 @@ function offerOf(
   const held = new Uint8Array(stops_s.length).fill(1);
   episodes.slice(0, last).forEach((episode, e) => {
     breaks.first_s[e]?.forEach((stop, k) => {
-      if (stop < episode.to_s) held[k] = 0;
+      if (stop < episode.held_s) held[k] = 0;
     });
   });
   const ends_by: Partial<Record<OfferEnd, number>> = {};

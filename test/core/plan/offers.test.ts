@@ -1,0 +1,319 @@
+import fc from 'fast-check';
+import { describe, expect, it } from 'vitest';
+import type { UnitDefinition } from '../../../src/core/definitions.js';
+import { commandOf } from '../../../src/core/plan/command.js';
+import { energyBetween } from '../../../src/core/plan/course.js';
+import type { OffersAsk } from '../../../src/core/plan/offerAsk.js';
+import { type Offer, offersOf } from '../../../src/core/plan/offers.js';
+import { createOutlook } from '../../../src/core/plan/outlook.js';
+import { firstBreaks, spreadOf } from '../../../src/core/plan/spread.js';
+import { hoursAt } from '../../../src/core/unit.js';
+import { watchedUnit } from '../dispatch/fullUnit.js';
+import { contextOf, H, HOUR_MS, unit } from './offerUnit.js';
+
+const LEAST = unit.limits.discharge.power_min_W;
+const MOST = unit.limits.discharge.power_max_W;
+const CERTAINTIES = [0.5, 0.8, 0.9, 0.99];
+const full = contextOf({ hot: 0.85, cold: 0.85 });
+
+function ask(over: Partial<OffersAsk> = {}): OffersAsk {
+  return {
+    powers_W: [60e3],
+    starts_ms: [HOUR_MS],
+    block_s: 900,
+    certainties: CERTAINTIES,
+    ...over,
+  };
+}
+
+function only(offers: readonly Offer[]): Offer {
+  expect(offers).toHaveLength(1);
+  return offers[0] as Offer;
+}
+
+describe('an offer table', () => {
+  it('gives for a discharge from now what hours gives, and its energy', () => {
+    const { operation: _, ...limits } = unit.limits;
+    const plain: UnitDefinition = { ...unit, limits };
+    const context = contextOf({ hot: 0.85, cold: 0.85 }, plain);
+    const offer = only(offersOf(context, ask({ starts_ms: [900_000] })));
+    const wait_h = offer.start_s / H;
+    const state = watchedUnit(plain, { hot: 0.85, cold: 0.85 }, 3);
+    const hours = hoursAt(plain, state, [60e3])[0]!.hours;
+    const sigma = (hours.p10 - hours.p90) / 2.56;
+    // Fixed points of their own, see NORMAL_COUNT and normalPoints: a tenth of a sigma at 10 %; the
+    // wait of 12 minutes costs less than that.
+    expect(wait_h).toBeLessThan(0.25);
+    for (const key of ['p90', 'p50', 'p10'] as const) {
+      expect(Math.abs(offer.hours[key] - hours[key])).toBeLessThan(0.12 * sigma);
+      expect(offer.energy_MWh_el[key]).toBeCloseTo(offer.hours[key] * 0.06, 9);
+    }
+  });
+
+  it('never gives more hours at more power, between the least and the greatest', () => {
+    fc.assert(
+      fc.property(
+        fc.double({ min: 0.3, max: 0.95, noNaN: true }),
+        fc.double({ min: 0.3, max: 0.95, noNaN: true }),
+        fc.uniqueArray(fc.integer({ min: 0, max: 20 }), { minLength: 2, maxLength: 4 }),
+        (hot, cold, steps) => {
+          const powers_W = steps
+            .sort((a, b) => a - b)
+            .map((n) => LEAST + ((MOST - LEAST) * n) / 20);
+          const offers = offersOf(contextOf({ hot, cold }), ask({ powers_W }));
+          offers.slice(1).forEach((offer, i) => {
+            const less = offers[i] as Offer;
+            for (const key of ['p90', 'p50', 'p10'] as const) {
+              expect(offer.hours[key]).toBeLessThanOrEqual(less.hours[key]);
+            }
+          });
+        },
+      ),
+      { numRuns: 6 },
+    );
+  });
+
+  it('gains nothing by waiting, beyond 0.5 % of the rated hours', () => {
+    fc.assert(
+      fc.property(
+        fc.double({ min: 0.4, max: 0.95, noNaN: true }),
+        fc.integer({ min: 1, max: 12 }),
+        (front, wait_h) => {
+          const starts_ms = [HOUR_MS, HOUR_MS * (1 + wait_h)];
+          const context = contextOf({ hot: front, cold: front });
+          const [now, later] = offersOf(context, ask({ starts_ms })) as [Offer, Offer];
+          expect(later.hours.p50).toBeLessThanOrEqual(now.hours.p50 + 0.005 * unit.rated_hours);
+        },
+      ),
+      { numRuns: 6 },
+    );
+  });
+
+  it('orders what it gives by certainty, with nothing negative', () => {
+    fc.assert(
+      fc.property(
+        fc.double({ min: 0.2, max: 0.95, noNaN: true }),
+        fc.double({ min: 0.2, max: 0.95, noNaN: true }),
+        fc.double({ min: LEAST, max: MOST, noNaN: true }),
+        (hot, cold, power_W) => {
+          const offer = only(offersOf(contextOf({ hot, cold }), ask({ powers_W: [power_W] })));
+          const inOrder = (values: readonly number[]): void => {
+            values.forEach((value, i) => {
+              expect(value).toBeGreaterThanOrEqual(0);
+              expect(value).toBeLessThanOrEqual(values[i - 1] ?? Number.POSITIVE_INFINITY);
+            });
+          };
+          inOrder(offer.at.map((at) => at.hours));
+          inOrder(offer.at.map((at) => at.energy_MWh_el));
+          inOrder(offer.at.map((at) => at.expected_shortfall_MWh_el));
+          inOrder(offer.at.map((at) => at.whole_blocks.alone));
+          for (const block of offer.blocks) {
+            inOrder(block.at.map((at) => at.energy_MWh_el));
+            expect(block.whole.jointly).toBeLessThanOrEqual(block.whole.alone);
+            expect(block.mean_MWh_el).toBeLessThanOrEqual(block.most_MWh_el + 1e-12);
+          }
+          inOrder(offer.blocks.map((block) => block.whole.alone));
+          const sum = Object.values(offer.ends_by).reduce((a, b) => a + b, 0);
+          expect(sum).toBeCloseTo(1, 9);
+        },
+      ),
+      { numRuns: 8 },
+    );
+  });
+
+  it('has block energies that add up to the integral of net power, ramps and start-up included', () => {
+    fc.assert(
+      fc.property(
+        fc.double({ min: LEAST, max: MOST, noNaN: true }),
+        fc.constantFrom(900, 1800, 3600),
+        fc.integer({ min: 1, max: 20 }),
+        (power_W, block_s, blocks) => {
+          const horizon_s = blocks * block_s;
+          const question = ask({
+            ...{ powers_W: [power_W], block_s: block_s as 900, horizon_s },
+          });
+          const offer = only(offersOf(full, question));
+          const legs = [
+            {
+              ...{ mode: 'discharge' as const, power_W },
+              ...{ from_s: offer.start_s, to_s: offer.start_s + horizon_s },
+            },
+          ];
+          const end = offer.start_s + horizon_s + 2 * H;
+          const { pieces } = commandOf(unit, legs, [], full.before, end);
+          const closes = offer.start_s + horizon_s + power_W / 100;
+          offer.at.forEach((at, i) => {
+            const sum = offer.blocks.reduce((a, b) => a + (b.at[i]?.energy_MWh_el as number), 0);
+            expect(sum).toBeCloseTo(at.energy_MWh_el, 9);
+            const stop = offer.begins_s + at.hours * H;
+            const until = at.hours * H >= horizon_s - 1e-6 ? closes : stop;
+            const net = energyBetween(pieces, offer.start_s, until) / 3.6e9;
+            expect(at.energy_MWh_el).toBeCloseTo(net, 9);
+          });
+          const mean = offer.blocks.reduce((a, b) => a + b.mean_MWh_el, 0);
+          expect(mean).toBeCloseTo(offer.mean_MWh_el, 9);
+        },
+      ),
+      { numRuns: 8 },
+    );
+  });
+
+  it('gives zero with a reason where a store is empty', () => {
+    const offer = only(offersOf(contextOf({ hot: 0.02, cold: 0.6 }), ask()));
+    expect(offer.refused).toMatch(/^empty: .*hot_outlet/);
+    expect(offer.hours).toEqual({ p90: 0, p50: 0, p10: 0 });
+    expect(offer.at.every((at) => at.energy_MWh_el === 0)).toBe(true);
+    expect(offer.blocks).toEqual([]);
+    expect(offer.ends_by.hot_outlet).toBe(1);
+  });
+
+  it('is the same where the slopes between powers are marched, within a tenth of a sigma', () => {
+    const powers_W = [15e3, 25e3, 40e3, 55e3, 70e3, 90e3];
+    const offers = offersOf(full, ask({ powers_W, starts_ms: [6 * HOUR_MS] }));
+    powers_W.forEach((power_W, i) => {
+      const offer = offers[i] as Offer;
+      const leg = { mode: 'discharge' as const, power_W, from_s: offer.start_s, to_s: Infinity };
+      const end = offer.start_s + 24 * H * Math.max(1, 60e3 / power_W);
+      const command = commandOf(unit, [leg], [], full.before, end);
+      const load = power_W / unit.rated_power_W;
+      const spread = spreadOf(createOutlook(full.model, full.state, load), command);
+      const stops = firstBreaks(spread)[0]!.slice().sort();
+      const at = (share: number): number =>
+        (stops[Math.floor(share * stops.length)]! - offer.begins_s) / H;
+      const sigma = (at(0.9) - at(0.1)) / 2.56;
+      expect(Math.abs(offer.hours.p90 - at(0.1))).toBeLessThan(0.1 * sigma);
+      expect(Math.abs(offer.hours.p50 - at(0.5))).toBeLessThan(0.1 * sigma);
+      expect(Math.abs(offer.hours.p10 - at(0.9))).toBeLessThan(0.1 * sigma);
+    });
+  });
+});
+
+describe('an offer after a plan', () => {
+  const legs = [
+    { mode: 'discharge' as const, power_W: 60e3, from_ms: HOUR_MS, to_ms: 4 * HOUR_MS },
+  ];
+
+  it('gives what the plan leaves', () => {
+    const starts_ms = [7 * HOUR_MS];
+    const alone = only(offersOf(full, ask({ starts_ms })));
+    const after = only(offersOf(full, ask({ starts_ms, legs })));
+    // Three hours of the same power (what the ramp up lacks, the ramp down gives), less what a fuller
+    // store loses more over the wait: 2 % an hour here at most.
+    const left = alone.energy_MWh_el.p50 - after.energy_MWh_el.p50;
+    expect(left).toBeGreaterThan(0.9 * 3 * 0.06);
+    expect(left).toBeLessThan(1.05 * 3 * 0.06);
+    expect(after.plan_holds).toBe(1);
+  });
+
+  it('has blocks alone and jointly the same without a plan, and not after one that may fail', () => {
+    const short = contextOf({ hot: 0.5, cold: 0.5 });
+    const alone = only(offersOf(short, ask()));
+    for (const { whole } of alone.blocks) expect(whole.jointly).toBe(whole.alone);
+    // To its median end: half of the points have stopped by then.
+    const to_ms = Math.round(HOUR_MS * (1 + alone.hours.p50));
+    const plan = [{ mode: 'discharge' as const, power_W: 60e3, from_ms: HOUR_MS, to_ms }];
+    const recharge = {
+      ...{ mode: 'charge' as const, power_W: 100e3 },
+      ...{ from_ms: to_ms + HOUR_MS, to_ms: to_ms + 4 * HOUR_MS },
+    };
+    const starts_ms = [Math.ceil((to_ms + 5 * HOUR_MS) / HOUR_MS) * HOUR_MS];
+    const after = only(offersOf(short, ask({ starts_ms, legs: [...plan, recharge] })));
+    expect(after.plan_holds).toBeGreaterThan(0.05);
+    expect(after.plan_holds).toBeLessThan(0.95);
+    const first = after.blocks[1]!;
+    expect(first.whole.alone).toBeGreaterThan(0.99);
+    expect(first.whole.jointly).toBeCloseTo(after.plan_holds!, 1);
+    const [at] = after.at;
+    expect(at!.whole_blocks.jointly).toBeLessThanOrEqual(at!.whole_blocks.alone);
+  });
+
+  it('begins late, and says so, where the unit is not ready at the start', () => {
+    const charging = [{ mode: 'charge' as const, power_W: 60e3, from_ms: 0, to_ms: HOUR_MS }];
+    const offer = only(offersOf(full, ask({ legs: charging })));
+    // Ramp down of 10 min, change-over of 5, start-up of 6.
+    expect(offer.begins_s - offer.start_s).toBeCloseTo(600 + 300 + 360, 6);
+    expect(offer.limited[0]).toMatchObject({ cause: 'change_over', from_s: offer.start_s });
+    expect(offer.start_up_MWh_el.after_start).toBeGreaterThan(1.8e6 / 3.6e9);
+    expect(offer.blocks[0]!.whole.alone).toBe(0);
+    // What is drawn after the start is in the first block: less than nothing was given there.
+    expect(offer.blocks[0]!.most_MWh_el).toBeLessThan(0);
+  });
+});
+
+describe('an offer that is limited', () => {
+  it('is refused with the range above the greatest and below the least power', () => {
+    const [low, high] = offersOf(full, ask({ powers_W: [10e3, 95e3] })) as [Offer, Offer];
+    expect(low.refused).toBe(
+      'below_least_power: the unit discharges at 0.015 to 0.090 MW_el, not at 0.010',
+    );
+    expect(high.refused).toMatch(/^above_greatest_power: /);
+    expect([low, high].every((offer) => offer.hours.p10 === 0)).toBe(true);
+  });
+
+  it('ends at an outage that is planned, which is its cause', () => {
+    const outages = [
+      {
+        ...{ from_ms: 2 * HOUR_MS, to_ms: 9 * HOUR_MS, discharge_max_W: 0, charge_max_W: 0 },
+        reason: 'works',
+      },
+    ];
+    const out = contextOf(
+      { hot: 0.85, cold: 0.85 },
+      { ...unit, limits: { ...unit.limits, outages } },
+    );
+    const offer = only(offersOf(out, ask()));
+    expect(offer.ends_by).toEqual({ outage: 1 });
+    expect(offer.hours.p90).toBeCloseTo(1, 9);
+    expect(offer.at[0]!.whole_blocks.alone).toBe(4);
+  });
+});
+
+describe('prices of being wrong', () => {
+  it('give the certainty worth bidding, at which the expected cost is least', () => {
+    const prices = { shortfall_per_MWh_el: 90, surplus_per_MWh_el: 30 };
+    const certainties = [0.5, 0.65, 0.75, 0.85, 0.95];
+    const offer = only(offersOf(full, ask({ prices, certainties })));
+    expect(offer.bid?.certainty).toBeCloseTo(0.75, 12);
+    // E[(D - q)+] = E[D] - q + E[(q - D)+]
+    const cost = certainties.map((_, i) => {
+      const { energy_MWh_el: q, expected_shortfall_MWh_el: short } = offer.at[i]!;
+      return 90 * short + 30 * (offer.mean_MWh_el - q + short);
+    });
+    expect(cost.indexOf(Math.min(...cost))).toBe(2);
+    expect(offer.bid?.energy_MWh_el).toBe(offer.at[2]!.energy_MWh_el);
+    const blocks = offer.blocks.reduce((sum, block) => sum + (block.bid_MWh_el as number), 0);
+    expect(blocks).toBeCloseTo(offer.bid!.energy_MWh_el, 9);
+  });
+});
+
+describe('a wrong question', () => {
+  it.each([
+    [{ powers_W: [-1] }, /powers_W\[0\] = -1: expected a finite number above 0/],
+    [{ block_s: 600 as 900 }, /block_s = 600: expected one of 900, 1800, 3600/],
+    [{ certainties: [0.4] }, /certainties\[0\] = 0.4: expected 0.5 to 0.99/],
+    [{ starts_ms: [60_000] }, /starts_ms\[0\] = .*00:01:00Z.*: expected .*00:15:00Z or later/],
+    [{ starts_ms: [HOUR_MS + 60_000] }, /expected the beginning of a block of 15 min, such as/],
+    [{ starts_ms: [8 * 24 * HOUR_MS] }, /expected a start within 7 days/],
+    [{ horizon_s: 1000 }, /horizon_s = 1000: expected a multiple of the block of 900 s/],
+    [
+      { prices: { shortfall_per_MWh_el: 0, surplus_per_MWh_el: 1 } },
+      /prices.shortfall_per_MWh_el = 0: expected a finite number above 0/,
+    ],
+    [
+      { legs: [{ mode: 'stand' as const, power_W: 0, from_ms: 5, to_ms: 5 }] },
+      /legs\[0\].to_ms = .*: expected later than/,
+    ],
+    [{ gate: { closes_before_s: 0, count: 2, every_s: 900 } }, /expected none beside a gate/],
+  ])('%j is answered with field, value and what would be right', (over, said) => {
+    expect(() => offersOf(full, ask(over))).toThrow(RangeError);
+    expect(() => offersOf(full, ask(over))).toThrow(said);
+  });
+
+  it('a gate gives the first block after it closes, and so many on', () => {
+    const { starts_ms: _, ...rest } = ask({ powers_W: [95e3] });
+    const gate = { closes_before_s: 1800, count: 3, every_s: 3600 };
+    // 00:03 and half an hour: 00:45.
+    const starts = offersOf(full, { ...rest, gate }).map((offer) => offer.start_s + 180);
+    expect(starts).toEqual([2700, 2700 + 3600, 2700 + 7200]);
+  });
+});
