@@ -21,6 +21,9 @@ export interface HeatBalance {
   /** Of its variance, as far as strings see it: what lasts over the run, and what does not. */
   lasting: number;
   passing: number;
+  /** Share of the variance that lasts as last worked out, and the state of charge then (-1 = never). */
+  share: number;
+  share_soc: number;
   /** Heat in the wall's steel then, and since what the metered gas has brought and what was lost [J]. */
   steel: number;
   metered: number;
@@ -36,6 +39,8 @@ export function startHeatBalance(): HeatBalance {
     soc_sigma: 0,
     lasting: 0,
     passing: 0,
+    share: 0,
+    share_soc: -1,
     steel: 0,
     metered: 0,
     lost: 0,
@@ -47,6 +52,7 @@ export function startHeatBalance(): HeatBalance {
 const LEAST_CHANGE = 0.15;
 /** Before that it begins anew where the state of charge has become so much surer. */
 const SURER = 0.8;
+const SHARE_STEP = 0.01;
 /** What the balance leaves out: the steel of the ends (0.2 % of a full store), a fifth of the losses. */
 const LEFT_OUT = 0.004;
 /** Thermometers at the two ends: +/-1 K each. */
@@ -107,7 +113,7 @@ export function stepHeatBalance(
     balance.direction = direction;
     balance.soc = energy.soc;
     balance.soc_sigma = energy.soc_sigma;
-    if (direction !== null) Object.assign(balance, errorsOf(model, state, energy));
+    if (direction !== null) Object.assign(balance, errorsOf(model, state, balance, energy));
     balance.steel = steelOf(model, state);
     balance.metered = 0;
     balance.lost = 0;
@@ -126,20 +132,28 @@ export function stepHeatBalance(
   const beside = balance.lost + steelOf(model, state) - balance.steel;
   const ratio = (change * full_J + beside) / balance.metered;
   if (!(ratio > 0.2 && ratio < 5)) return;
-  const now = errorsOf(model, state, energy);
+  const now = errorsOf(model, state, balance, energy);
   const variance =
     (balance.passing + now.passing + Math.abs(balance.lasting - now.lasting)) / change ** 2;
   balance.last[direction] = { log: Math.log(ratio), variance, age_s: 0 };
 }
 
-/** The variance of the state of charge by how long its causes last. */
+/**
+ * The variance of the state of charge by how long its causes last. Their shares are worked out anew
+ * with every per cent of it, since that costs a tenth of a scan.
+ */
 function errorsOf(
   model: StoreModel,
   state: StoreState,
+  balance: HeatBalance,
   energy: StoreEnergy,
 ): Pick<HeatBalance, 'lasting' | 'passing'> {
   const seen = Math.max(0, energy.soc_sigma ** 2 - energy.unseen ** 2);
-  const lasting = seen * lastingShare(model, state);
+  if (!(Math.abs(energy.soc - balance.share_soc) < SHARE_STEP)) {
+    balance.share = lastingShare(model, state);
+    balance.share_soc = energy.soc;
+  }
+  const lasting = seen * balance.share;
   return { lasting, passing: seen - lasting };
 }
 

@@ -183,7 +183,13 @@ describe('the heat balance of a store', () => {
 
   it('goes on from a state saved before ages and lasting errors were kept', () => {
     const saved = startHeatBalance();
-    const { lasting: _, passing: __, ...old } = { ...saved, direction: 'charge' as const };
+    const {
+      lasting: _,
+      passing: __,
+      share: ___,
+      share_soc: ____,
+      ...old
+    } = { ...saved, direction: 'charge' as const };
     const kept = { log: 0.01, variance: 1e-4 };
     const balance = { ...old, last: { charge: kept, discharge: null } } as unknown as HeatBalance;
     const model = models[0] as (typeof models)[number];
