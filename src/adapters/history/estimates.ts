@@ -97,6 +97,26 @@ export class Estimates {
     return thin(this.decode(rows), many, from_ms, to_ms, points);
   }
 
+  /**
+   * Some series of a unit as they were stored, oldest first: numbers as they are, words as their place
+   * in `wordsOf`; NaN where a row has none.
+   */
+  *rows(
+    unit: string,
+    from_ms: number,
+    to_ms: number,
+    names: readonly string[],
+  ): IterableIterator<{ time_ms: number; values: number[] }> {
+    const select = this.database.prepare(
+      'SELECT time, layout, series FROM estimates WHERE unit = ? AND time BETWEEN ? AND ? ORDER BY time',
+    );
+    const rows = select.iterate(unit, from_ms, to_ms) as IterableIterator<StoredRow>;
+    for (const row of this.decode(rows)) {
+      const values = names.map((name) => row.values[row.names.indexOf(name)] ?? Number.NaN);
+      yield { time_ms: row.time_ms, values };
+    }
+  }
+
   /** Names that `series` may give for this unit. */
   names(unit: UnitDefinition): string[] {
     return seriesNames(unit).flatMap((name) =>

@@ -3,14 +3,15 @@ import { Checkpoints } from './checkpoints.js';
 import { type Database, openDatabase, storeFailure } from './database.js';
 import { Estimates } from './estimates.js';
 import { Events } from './events.js';
+import { Offers } from './offers.js';
 import { Outbox } from './outbox.js';
 import { applyRetention, type RetentionCounts } from './retention.js';
 import { HISTORY_SCHEMA } from './schema.js';
 import { Sequence } from './sequence.js';
 
 /**
- * The local history: one SQLite file with estimates, dispatch answers, profiles, events, what
- * stands, checkpoints and the forwarder's cursor. A power cut may undo the last moments of it,
+ * The local history: one SQLite file with estimates, dispatch answers, offers, profiles, events,
+ * what stands, checkpoints and the forwarder's cursor. A power cut may undo the last moments of it,
  * checkpoints included, as a whole: the journal, which is synced, makes them again.
  */
 export class History {
@@ -20,6 +21,7 @@ export class History {
     readonly events: Events;
     readonly checkpoints: Checkpoints;
     readonly outbox: Outbox;
+    readonly offers: Offers;
   } | null = null;
 
   constructor(
@@ -38,6 +40,7 @@ export class History {
       events: new Events(database, sequence),
       checkpoints: new Checkpoints(database),
       outbox: new Outbox(database),
+      offers: new Offers(database),
     };
   }
 
@@ -57,6 +60,9 @@ export class History {
   }
   get outbox(): Outbox {
     return this.parts.outbox;
+  }
+  get offers(): Offers {
+    return this.parts.offers;
   }
 
   /** Runs `write` in one transaction; SQLite's failures become errors of the catalogue. */

@@ -1,5 +1,6 @@
 import type { StoreConfig } from '../../config/site.js';
 import type { Database } from './database.js';
+import { MOST_KEPT } from './offers.js';
 
 const DAY_MS = 86_400_000;
 /** Most source time thinned in one go [ms]: a day of 30 s scans takes some 20 ms. */
@@ -33,7 +34,8 @@ export function applyRetention(
       .pluck()
       .get(end, limit) as number;
     let estimates = remove(database, 'estimates', end);
-    for (const table of ['dispatch', 'profiles']) remove(database, table, end);
+    for (const table of ['dispatch', 'profiles', 'offers']) remove(database, table, end);
+    removeSurplusOffers(database);
     const events = remove(database, 'events', end);
     estimates += thinEstimates(database, store, now_ms, limit);
     return { estimates, events, not_forwarded };
@@ -42,6 +44,19 @@ export function applyRetention(
 
 function remove(database: Database, table: string, end_ms: number): number {
   return database.prepare(`DELETE FROM ${table} WHERE time < ?`).run(end_ms).changes;
+}
+
+/** Clients may ask without end: beyond so many of a unit the oldest go, whatever their age. */
+function removeSurplusOffers(database: Database): void {
+  const units = database.prepare('SELECT DISTINCT unit FROM offers').pluck().all() as string[];
+  for (const unit of units) {
+    database
+      .prepare(
+        `DELETE FROM offers WHERE unit = @unit AND no <= (
+           SELECT no FROM offers WHERE unit = @unit ORDER BY no DESC LIMIT 1 OFFSET @most)`,
+      )
+      .run({ unit, most: MOST_KEPT });
+  }
 }
 
 function thinEstimates(

@@ -26,4 +26,11 @@ export const HISTORY_SCHEMA = [
      unit TEXT NOT NULL, time INTEGER NOT NULL, journal_seq INTEGER NOT NULL,
      fingerprint TEXT NOT NULL, image BLOB NOT NULL, PRIMARY KEY (unit, time));
    CREATE TABLE cursors (name TEXT PRIMARY KEY, value INTEGER NOT NULL) WITHOUT ROWID;`,
+  // Offers as they were answered: what was sold on their strength is never rewritten.
+  `CREATE TABLE offers (
+     no INTEGER PRIMARY KEY AUTOINCREMENT, unit TEXT NOT NULL, asked INTEGER NOT NULL,
+     time INTEGER NOT NULL, content BLOB NOT NULL);
+   CREATE INDEX offers_by_unit ON offers (unit, asked);
+   CREATE TRIGGER offers_stay BEFORE UPDATE ON offers
+     BEGIN SELECT RAISE(ABORT, 'offers are never rewritten'); END;`,
 ];
