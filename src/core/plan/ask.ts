@@ -1,6 +1,7 @@
 import type { UnitDefinition } from '../definitions.js';
 import { unitModel } from '../unitModel.js';
 import type { UnitState } from '../unitState.js';
+import { type Balance, type BalanceAsk, balanceOf } from './balance.js';
 import { type Capability, type CapabilityAsk, capabilityOf } from './capability.js';
 import { planContext } from './context.js';
 import { type Headroom, type HeadroomAsk, headroomOf } from './headroom.js';
@@ -11,12 +12,14 @@ import { type Offer, offersOf } from './offers.js';
 export type PlanQuestion =
   | { readonly kind: 'headroom'; readonly ask: HeadroomAsk }
   | { readonly kind: 'capability'; readonly ask: CapabilityAsk }
+  | { readonly kind: 'balance'; readonly ask: BalanceAsk }
   | { readonly kind: 'offers'; readonly ask: OffersAsk };
 
 /** What each kind of question is answered with. */
 export interface PlanAnswers {
   readonly headroom: Headroom[];
   readonly capability: Capability;
+  readonly balance: Balance;
   readonly offers: Offer[];
 }
 export type PlanAnswer = PlanAnswers[keyof PlanAnswers];
@@ -37,6 +40,8 @@ export function answerPlan(
       return headroomOf(context, question.ask);
     case 'capability':
       return capabilityOf(context, question.ask);
+    case 'balance':
+      return balanceOf(context, question.ask);
     case 'offers':
       return offersOf(context, question.ask);
   }
