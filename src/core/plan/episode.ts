@@ -135,12 +135,13 @@ export function marchEpisode(
   const direction = first.mode as Direction;
   const run = going === null ? startRun(model, ahead, direction, first.from_s) : copyRun(going);
   const delivered: Delivered[] = [];
+  const down = pieces[rampDown(pieces)];
   let stopped: number | null = null;
   /** Before a ramp down to standing: what a unit that held its power would go on with. */
   let held: { run: Run; ahead: BedsAhead; power_W: number } | null = null;
   for (const piece of pieces) {
     if (stopped !== null) break;
-    if (piece === last && piece !== first && piece.purpose === 'ramp' && piece.power1_W === 0) {
+    if (piece === down) {
       held = { run: copyRun(run), ahead: copyAhead(ahead), power_W: Math.abs(piece.power0_W) };
     }
     while (stopped === null && run.t < piece.to_s - 1e-6) {
@@ -163,7 +164,7 @@ export function marchEpisode(
   }
   const at = stopped ?? run.t;
   const running = { run: copyRun(run), stopped: stopped !== null };
-  const held_s = held?.run.t ?? last.to_s;
+  const held_s = down?.from_s ?? last.to_s;
   const on = held ?? {
     run,
     ahead: copyAhead(ahead),
@@ -196,6 +197,19 @@ export function marchEpisode(
     running,
     delivered: stopped === null ? delivered : cutAt(delivered, stopped),
   };
+}
+
+/** Index of the first piece of a ramp down to standing that ends a run; their number where none does. */
+function rampDown(pieces: readonly Piece[]): number {
+  let from = pieces.length;
+  let next_W = 0;
+  for (; from > 1; from--) {
+    const { purpose, power0_W, power1_W } = pieces[from - 1] as Piece;
+    const falls = purpose === 'ramp' && Math.abs(power0_W) > Math.abs(power1_W);
+    if (!falls || power1_W !== next_W) break;
+    next_W = power0_W;
+  }
+  return from;
 }
 
 function startRun(model: AheadModel, ahead: BedsAhead, direction: Direction, from_s: number): Run {
