@@ -7,13 +7,16 @@ import { planContext } from './context.js';
 import { type Headroom, type HeadroomAsk, headroomOf } from './headroom.js';
 import type { OffersAsk } from './offerAsk.js';
 import { type Offer, offersOf } from './offers.js';
+import { type Schedule, scheduleOf } from './schedule.js';
+import type { ScheduleAsk } from './scheduleAsk.js';
 
 /** A question about what lies ahead of a unit's present state. */
 export type PlanQuestion =
   | { readonly kind: 'headroom'; readonly ask: HeadroomAsk }
   | { readonly kind: 'capability'; readonly ask: CapabilityAsk }
   | { readonly kind: 'balance'; readonly ask: BalanceAsk }
-  | { readonly kind: 'offers'; readonly ask: OffersAsk };
+  | { readonly kind: 'offers'; readonly ask: OffersAsk }
+  | { readonly kind: 'schedule'; readonly ask: ScheduleAsk };
 
 /** What each kind of question is answered with. */
 export interface PlanAnswers {
@@ -21,6 +24,7 @@ export interface PlanAnswers {
   readonly capability: Capability;
   readonly balance: Balance;
   readonly offers: Offer[];
+  readonly schedule: Schedule;
 }
 export type PlanAnswer = PlanAnswers[keyof PlanAnswers];
 
@@ -44,5 +48,7 @@ export function answerPlan(
       return balanceOf(context, question.ask);
     case 'offers':
       return offersOf(context, question.ask);
+    case 'schedule':
+      return scheduleOf(context, question.ask);
   }
 }

@@ -1,0 +1,112 @@
+import type { Direction } from '../definitions.js';
+import { RULES } from '../dispatch/rollout.js';
+import type { Command } from './command.js';
+import type { Course } from './course.js';
+import type { Episode } from './episode.js';
+import { NORMAL_COUNT } from './latinNormals.js';
+import type { Outlook } from './outlook.js';
+import {
+  covarianceOf,
+  type Marches,
+  type PlanSpread,
+  responseOf,
+  ruleSamples,
+  ruleTimes,
+} from './spread.js';
+
+/** What becomes of a command, and how surely: one value per point of the joint distribution. */
+export interface Evaluation {
+  readonly command: Command;
+  readonly course: Course;
+  /** Per run: when its first rule breaks [s], and which (index in `RULES`, -1 = none). */
+  readonly first_s: readonly Float64Array[];
+  readonly rule: readonly Int8Array[];
+  /** Per run: when it stops [s], and from when on it needs more than the greatest flow [s]. */
+  readonly stop_s: readonly Float64Array[];
+  readonly derate_s: readonly Float64Array[];
+  /** How far past their ends runs were followed [s]; Infinity above stands for later than that. */
+  readonly beyond_s: number;
+}
+
+const FLOW = RULES.indexOf('flow');
+/** Ends of pieces are sums of floats [s]. */
+const SAME_S = 1e-6;
+
+/**
+ * Carries out a command with everything that is uncertain.
+ *
+ * Later runs follow the most likely course of those before: where that stops one early, they begin
+ * with what it left.
+ *
+ * @param marches of this command, `beyond_s` past the end of each run
+ */
+export function evaluate(
+  outlook: Outlook,
+  command: Command,
+  marches: Marches,
+  beyond_s: number,
+): Evaluation {
+  const course = marches.best();
+  const times = ruleTimes(course);
+  const response = responseOf(outlook.model, marches, times);
+  const covariance = covarianceOf(outlook, command, course, times, response);
+  return { ...samplesOf({ course, times, covariance }), command, course, beyond_s };
+}
+
+function samplesOf(
+  spread: PlanSpread,
+): Pick<Evaluation, 'first_s' | 'rule' | 'stop_s' | 'derate_s'> {
+  const { episodes } = spread.course;
+  const never = (): Float64Array[] =>
+    episodes.map(() => new Float64Array(NORMAL_COUNT).fill(Number.POSITIVE_INFINITY));
+  const first_s = never();
+  const stop_s = never();
+  const derate_s = never();
+  const rule = episodes.map(() => new Int8Array(NORMAL_COUNT).fill(-1));
+  ruleSamples(spread).forEach((samples, a) => {
+    const q = spread.times[a] as (typeof spread.times)[number];
+    const own = q.rule === FLOW ? derate_s : stop_s;
+    samples.forEach((value, k) => {
+      const e = q.episode;
+      if (value < (own[e]?.[k] as number)) (own[e] as Float64Array)[k] = value;
+      if (!(value < (first_s[e]?.[k] as number))) return;
+      (first_s[e] as Float64Array)[k] = value;
+      (rule[e] as Int8Array)[k] = q.rule;
+    });
+  });
+  return { first_s, rule, stop_s, derate_s };
+}
+
+/**
+ * Probability that all runs hold their power to their end, jointly.
+ *
+ * @param direction only these runs; absent = all
+ */
+export function holding(
+  episodes: readonly Episode[],
+  first_s: readonly Float64Array[],
+  direction?: Direction,
+): number {
+  const runs = episodes.flatMap((episode, e) =>
+    direction === undefined || episode.direction === direction
+      ? [{ held_s: episode.held_s - SAME_S, first: first_s[e] as Float64Array }]
+      : [],
+  );
+  if (runs.length === 0) return 1;
+  let held = 0;
+  for (let k = 0; k < NORMAL_COUNT; k++) {
+    if (runs.every(({ held_s, first }) => (first[k] as number) >= held_s)) held++;
+  }
+  return held / NORMAL_COUNT;
+}
+
+/**
+ * Value that is exceeded with a probability, of values in any order; Infinity counts as any other.
+ *
+ * @param certainty 0 to 1, exclusive of 1
+ */
+export function exceeded(values: Float64Array, certainty: number): number {
+  const sorted = values.slice().sort();
+  const at = Math.floor((1 - certainty) * sorted.length);
+  return sorted[Math.min(sorted.length - 1, at)] as number;
+}

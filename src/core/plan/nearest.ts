@@ -1,0 +1,232 @@
+import type { Direction, UnitDefinition } from '../definitions.js';
+import { type Evaluation, holding } from './evaluation.js';
+import { directionOf, type Leg } from './leg.js';
+import type { Planner } from './planner.js';
+import { type TrialBase, trial, trialBase } from './trial.js';
+import { withoutUnmet } from './withoutUnmet.js';
+
+/** The schedule nearest to one asked for that holds at a certainty. */
+export interface NearestLegs {
+  readonly legs: readonly Leg[];
+  /** On all powers of a direction, at most 1. */
+  readonly factor: Readonly<Record<Direction, number>>;
+  /** Ends drawn in, as they were and as they are [s]. */
+  readonly drawn_in: readonly DrawnIn[];
+  /** Whether parts were taken out that the machine cannot be commanded. */
+  readonly taken_out: boolean;
+  /** Probability that it holds, by a full evaluation. */
+  readonly probability: number;
+}
+
+export interface DrawnIn {
+  readonly direction: Direction;
+  readonly asked_s: number;
+  /** Start of the run where nothing of it is left. */
+  readonly end_s: number;
+}
+
+/** Where no least power is set a factor goes down to this. */
+const LEAST_FACTOR = 0.01;
+/** Halvings of a factor's range. */
+const HALVINGS = 10;
+const FULL_EVALUATIONS = 4;
+/** Share of the risk by which what is found may be surer than asked for. */
+const SURER = 0.2;
+
+/**
+ * The nearest schedule that holds with a certainty. Nearest means: one common factor, the greatest
+ * that holds, on all discharging powers; where no factor holds at or above the least power, with the
+ * smallest factor the end of the last discharge is drawn in, to the latest whole minute that holds,
+ * and that of the one before where nothing of the last is left. Where a charge cannot be held, the
+ * same is done with charging powers first, so that charges leave at most half of the risk. What
+ * machine, connection and outages still do not allow is then taken out.
+ *
+ * Found by bisection on one cheap march per try with the spread of a full evaluation (see trial), then
+ * evaluated in full; where that falls short of the certainty or is much surer, sought anew from there.
+ *
+ * @param evaluation of the legs as they were asked for
+ * @returns null where nothing was found that holds
+ */
+export function nearestLegs(
+  planner: Planner,
+  legs: readonly Leg[],
+  evaluation: Evaluation,
+  certainty: number,
+): NearestLegs | null {
+  const asked: Sought = { legs, factor: { charge: 1, discharge: 1 }, drawn_in: [] };
+  let own = evaluation;
+  let found = asked;
+  let best: NearestLegs | null = null;
+  for (let n = 0; ; n++) {
+    const probability = holding(own.course.episodes, own.first_s);
+    const holds = probability >= certainty && own.command.unmet.length === 0;
+    const changed = found.factor.discharge < 1 || found.factor.charge < 1;
+    if (holds && (best === null || isNearer(found, best))) {
+      const taken_out = found.legs.length > legs.length || tookOut(found, legs);
+      best = { ...found, taken_out, probability };
+    }
+    if (holds && (!changed || probability - certainty <= SURER * (1 - certainty))) break;
+    if (n === FULL_EVALUATIONS - 1) break;
+    // A little above, so that cheap and full evaluation seldom disagree.
+    const target = certainty + (1 - certainty) * 0.02 * 3 ** n;
+    const next = seek(planner, legs, trialBase(planner, own), target);
+    if (n > 0 && sameFactors(next, found)) break;
+    found = next;
+    own = planner.evaluate(planner.command(found.legs));
+  }
+  return best;
+}
+
+interface Sought {
+  readonly legs: readonly Leg[];
+  readonly factor: Readonly<Record<Direction, number>>;
+  readonly drawn_in: readonly DrawnIn[];
+}
+
+/** Whether what was sought keeps more of what was asked for than another. */
+function isNearer(one: Sought, other: Sought): boolean {
+  return energyOf(one.legs) > energyOf(other.legs);
+}
+
+function sameFactors(one: Sought, other: Sought): boolean {
+  return energyOf(one.legs) === energyOf(other.legs);
+}
+
+const energyOf = (legs: readonly Leg[]): number =>
+  legs.reduce((sum, { power_W, from_s, to_s }) => sum + power_W * (to_s - from_s), 0);
+
+/** Whether legs lack more than factors and drawn ends took. */
+function tookOut(found: Sought, legs: readonly Leg[]): boolean {
+  const plain = drawIn(scale(legs, found.factor), found.drawn_in);
+  return energyOf(plain) - energyOf(found.legs) > 1e-9 * energyOf(plain);
+}
+
+function seek(planner: Planner, legs: readonly Leg[], base: TrialBase, target: number): Sought {
+  const { unit } = planner.outlook.model;
+  const factor = { charge: 1, discharge: 1 };
+  const drawn: Record<Direction, DrawnIn[]> = { charge: [], discharge: [] };
+  const made = (): readonly Leg[] => {
+    const ends = [...drawn.charge, ...drawn.discharge];
+    return withoutUnmet(planner, drawIn(scale(legs, factor), ends));
+  };
+  const odds = (direction?: Direction): number => {
+    const { episodes, first_s } = trial(planner, base, made());
+    return holding(episodes, first_s, direction);
+  };
+  const mend = (direction: Direction, holds: () => boolean): void => {
+    drawn[direction] = [];
+    factor[direction] = 1;
+    if (holds()) return;
+    const least = leastFactor(unit, legs, direction);
+    const held = greatest(least, 1, HALVINGS, (value) => {
+      factor[direction] = value;
+      return holds();
+    });
+    factor[direction] = held ?? least;
+    if (held !== null) return;
+    drawn[direction] = drawnIn(legs, direction, (ends) => {
+      drawn[direction] = ends;
+      return holds();
+    });
+  };
+  const charges = target + (1 - target) / 2;
+  // What discharges no longer take is in the way of later charges: once more then.
+  for (let n = 0; n < 2; n++) {
+    mend('charge', () => odds('charge') >= charges);
+    mend('discharge', () => odds() >= target);
+    if (odds() >= target) break;
+  }
+  return { legs: made(), factor, drawn_in: [...drawn.charge, ...drawn.discharge] };
+}
+
+/** Factor at which the smallest power of a direction is the least power. */
+function leastFactor(unit: UnitDefinition, legs: readonly Leg[], direction: Direction): number {
+  const powers = legs.filter((leg) => directionOf(leg) === direction).map((leg) => leg.power_W);
+  const least_W = unit.limits[direction].power_min_W;
+  // A hair above, so that the product is not below the least power by a rounding.
+  return Math.min(1, Math.max(LEAST_FACTOR, (least_W / Math.min(...powers)) * (1 + 1e-12)));
+}
+
+/** Greatest value that holds, of a range whose upper end does not; null where none does. */
+function greatest(
+  least: number,
+  most: number,
+  halvings: number,
+  holds: (value: number) => boolean,
+): number | null {
+  if (least >= most || !holds(least)) return null;
+  let low = least;
+  let high = most;
+  for (let n = 0; n < halvings; n++) {
+    const middle = (low + high) / 2;
+    if (holds(middle)) low = middle;
+    else high = middle;
+  }
+  return low;
+}
+
+function scale(legs: readonly Leg[], factor: Readonly<Record<Direction, number>>): Leg[] {
+  return legs.map((leg) => {
+    const direction = directionOf(leg);
+    return direction === null ? leg : { ...leg, power_W: leg.power_W * factor[direction] };
+  });
+}
+
+/** Runs of a direction: legs that follow each other without a break [s]. */
+function runsOf(
+  legs: readonly Leg[],
+  direction: Direction,
+): { readonly from_s: number; readonly to_s: number }[] {
+  const runs: { from_s: number; to_s: number }[] = [];
+  for (const leg of legs) {
+    if (directionOf(leg) !== direction) continue;
+    const last = runs[runs.length - 1];
+    if (last !== undefined && last.to_s === leg.from_s) last.to_s = leg.to_s;
+    else runs.push({ from_s: leg.from_s, to_s: leg.to_s });
+  }
+  return runs;
+}
+
+/** Draws in the last run's end, and those before where nothing is left of it. */
+function drawnIn(
+  legs: readonly Leg[],
+  direction: Direction,
+  holds: (ends: DrawnIn[]) => boolean,
+): DrawnIn[] {
+  const ends: DrawnIn[] = [];
+  for (const run of runsOf(legs, direction).reverse()) {
+    const with_ = (end_s: number): DrawnIn[] => [...ends, { direction, asked_s: run.to_s, end_s }];
+    if (!holds(with_(run.from_s))) {
+      ends.push({ direction, asked_s: run.to_s, end_s: run.from_s });
+      continue;
+    }
+    const minutes = (run.to_s - run.from_s) / 60;
+    const halvings = Math.ceil(Math.log2(Math.max(2, minutes)));
+    const at = (value: number): number => run.from_s + Math.floor(value) * 60;
+    const most = greatest(0, minutes, halvings, (value) => holds(with_(at(value))));
+    ends.push({ direction, asked_s: run.to_s, end_s: at(most ?? 0) });
+    return ends;
+  }
+  return ends;
+}
+
+/** Legs without what lies past the ends drawn in of their runs. */
+function drawIn(legs: readonly Leg[], ends: readonly DrawnIn[]): Leg[] {
+  return legs.flatMap((leg) => {
+    const direction = directionOf(leg);
+    const end = ends.find(
+      ({ direction: own, asked_s, end_s }) =>
+        own === direction && leg.to_s <= asked_s && leg.to_s > end_s && sameRun(legs, leg, asked_s),
+    );
+    if (end === undefined) return [leg];
+    return end.end_s > leg.from_s ? [{ ...leg, to_s: end.end_s }] : [];
+  });
+}
+
+/** Whether a leg belongs to the run that ends then. */
+function sameRun(legs: readonly Leg[], leg: Leg, end_s: number): boolean {
+  const direction = directionOf(leg) as Direction;
+  return runsOf(legs, direction).some(
+    (run) => run.to_s === end_s && leg.from_s >= run.from_s && leg.to_s <= run.to_s,
+  );
+}
