@@ -1,12 +1,13 @@
 import type { Direction } from '../definitions.js';
 import type { HeatCapacity } from '../dispatch/heatCapacity.js';
-import type { AheadModel, BedsAhead } from './bedsAhead.js';
+import { excessLag } from '../dispatch/plenum.js';
+import { type AheadModel, type BedsAhead, OUTLET } from './bedsAhead.js';
 import { contentOf } from './content.js';
 import { energyBetween } from './course.js';
 import type { MarchOptions } from './episode.js';
-import { type GreatestPower, greatestPower } from './greatest.js';
+import { type GreatestPower, greatestPower, nominalCeiling } from './greatest.js';
 import { firstBreak_s, type LimitRun, type Moment, runToLimit } from './limitToLimit.js';
-import { valueAt } from './piecewise.js';
+import { type CurvePoint, valueAt } from './piecewise.js';
 
 /** One moment of a march from limit to limit. */
 export interface PathSample extends GreatestPower {
@@ -64,15 +65,69 @@ export function pathOf(
   const { moments, ...run } = runToLimit(model, from, direction, power_W, most, options);
   const zero_h = direction === 'discharge' ? Math.min(run.first_h, run.hours) : run.hours;
   const charge = direction === 'discharge' ? downwards(march, run) : upwards(march, moments);
+  const greatest = greatestAlong(model, moments, direction);
   const samples = moments.map(
-    ({ t_s, beds }): PathSample => ({
+    ({ t_s, beds }, n): PathSample => ({
       soc: charge(t_s),
       energy_J: Math.abs(energyBetween(run.delivered, t_s, zero_h * 3600)),
       content_MWh_th: contentOf(model, beds, capacity),
-      ...greatestPower(model, beds, direction, t_s),
+      ...(greatest[n] as GreatestPower),
     }),
   );
   return { run, samples: ascending(samples, direction) };
+}
+
+/**
+ * Greatest power at each moment of a run. What leaves a bed is known as the mean of a step, and so
+ * counts for its middle, later by the lag of the plenum (see `excessLag`): what is seen at a moment is
+ * of that much earlier, and what is at the moment lies on a straight line through what is seen.
+ */
+function greatestAlong(
+  model: AheadModel,
+  moments: readonly Moment[],
+  direction: Direction,
+): GreatestPower[] {
+  const seen = moments.map(({ t_s, beds }) => greatestPower(model, beds, direction, t_s));
+  const line = seen.map(({ power_W }, n) => {
+    const { t_s } = moments[n] as Moment;
+    return { x: n === 0 ? t_s : t_s - lagOf(model, moments, n, direction), y: power_W };
+  });
+  const ceiling = nominalCeiling(model, direction);
+  return moments.map(({ t_s }, n): GreatestPower => {
+    const power_W = Math.max(0, onward(line, t_s));
+    return power_W >= ceiling.power_W ? ceiling : { ...(seen[n] as GreatestPower), power_W };
+  });
+}
+
+/** Mean over the stores [s]; see `excessLag`. */
+function lagOf(
+  model: AheadModel,
+  moments: readonly Moment[],
+  n: number,
+  direction: Direction,
+): number {
+  const { t_s, flow_kg_s, beds } = moments[n] as Moment;
+  const before = moments[n - 1] as Moment;
+  const end = OUTLET[direction];
+  if (!(flow_kg_s > 0)) return 0;
+  const lags = model.stores.map((store, s) =>
+    excessLag(
+      store,
+      before.beds.ends_K[s]?.[end] as number,
+      beds.left_K[s] as number,
+      flow_kg_s,
+      t_s - before.t_s,
+      end,
+    ),
+  );
+  return lags.reduce((sum, lag) => sum + lag, 0) / lags.length;
+}
+
+/** Value on straight lines, and past the last point on the line through the last two. */
+function onward(line: readonly CurvePoint[], x: number): number {
+  const [a, b] = line.slice(-2);
+  if (a === undefined || b === undefined || x <= b.x || b.x <= a.x) return valueAt(line, x);
+  return b.y + ((b.y - a.y) * (x - b.x)) / (b.x - a.x);
 }
 
 /** By a discharge at rated power the state of charge falls as time goes, to 0 at the first rule. */
