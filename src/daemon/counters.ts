@@ -28,6 +28,7 @@ const OWN_COUNTS = [
   /** Journal entries of a unit or channel that is no longer configured. */
   'unconfigured',
   'questions',
+  'offers_kept',
   'estimates_thinned',
   'estimates_not_forwarded',
 ] as const;

@@ -9,10 +9,15 @@ import type {
 } from '../adapters/http/service.js';
 import type { DispatchAnswer } from '../core/estimate.js';
 import type { PlanAnswer, PlanQuestion } from '../core/plan/ask.js';
+import type { OffersAsk } from '../core/plan/offerAsk.js';
+import type { OfferReport } from '../core/plan/offerReport.js';
+import type { KeptOffers } from '../core/plan/offerSummary.js';
+import type { AnsweredOffers } from '../core/plan/offerTable.js';
 import type { WatchEvent } from '../core/watch/event.js';
 import type { UnitWorth } from '../core/worth/unitWorth.js';
 import type { DaemonClock } from './clock.js';
 import type { Counters } from './counters.js';
+import { reportOffers } from './offerReports.js';
 import type { Questions } from './questions.js';
 import type { UnitRunner } from './unitRunner.js';
 
@@ -79,6 +84,26 @@ export class DaemonService implements PlantService {
     this.parts.counters.add('questions');
     const answer = await this.parts.questions.plan(runner.unit, runner.snapshot(), question);
     return { time, answer };
+  }
+
+  keepOffers(id: string, asked_ms: number, asked: OffersAsk, answer: AnsweredOffers): number {
+    const time_ms = Date.parse(String(answer.time));
+    const { unit } = this.runner(id);
+    const no = this.parts.history.offers.add(unit.id, asked_ms, time_ms, asked, answer);
+    this.parts.counters.add('offers_kept');
+    return no;
+  }
+
+  keptOffers(id: string, from_ms: number, to_ms: number, most: number): KeptOffers[] {
+    return this.parts.history.offers.between(this.runner(id).unit.id, from_ms, to_ms, most);
+  }
+
+  answeredOffers(id: string, no: number): AnsweredOffers | null {
+    return this.parts.history.offers.answer(this.runner(id).unit.id, no);
+  }
+
+  async offerReport(id: string, from_ms: number, to_ms: number): Promise<OfferReport> {
+    return reportOffers(this.parts.history, this.runner(id).unit, from_ms, to_ms);
   }
 
   async sensors(id: string, over: 'now' | 'day'): Promise<UnitWorth | null> {

@@ -1,25 +1,14 @@
 import { deflateSync, inflateSync } from 'node:zlib';
+import type { OffersAsk } from '../../core/plan/offerAsk.js';
+import { type KeptOffers, summaryOf } from '../../core/plan/offerSummary.js';
+import type { AnsweredOffers } from '../../core/plan/offerTable.js';
 import type { Database } from './database.js';
 
-/** An offer table as it was answered. */
-export interface KeptOffers {
-  /** Its number, never given twice. */
-  readonly no: number;
-  readonly unit: string;
-  /** When it was asked for, and the source time of the estimate it stands on [ms since 1970]. */
-  readonly asked_ms: number;
-  readonly time_ms: number;
-  /** What was asked and what was answered, both as they went over the wire. */
-  readonly asked: unknown;
-  readonly answer: unknown;
-}
-
-interface Row {
+interface SummaryRow {
   no: number;
-  unit: string;
   asked: number;
   time: number;
-  content: Buffer;
+  summary: string;
 }
 
 /** Newest tables that are kept of a unit; each takes some tens of kB. */
@@ -33,14 +22,21 @@ export class Offers {
   constructor(private readonly database: Database) {}
 
   /** @returns the number under which it is kept */
-  add({ unit, asked_ms, time_ms, asked, answer }: Omit<KeptOffers, 'no'>): number {
-    const content = deflateSync(JSON.stringify({ asked, answer }));
+  add(
+    unit: string,
+    asked_ms: number,
+    time_ms: number,
+    asked: OffersAsk,
+    answer: AnsweredOffers,
+  ): number {
+    const summary = JSON.stringify({ asked, offers: answer.offers.map(summaryOf) });
+    const content = deflateSync(JSON.stringify(answer));
     // What was sold on its strength does not come back: a power cut may not undo it.
     this.database.pragma('synchronous = FULL');
     try {
       const { lastInsertRowid } = this.database
-        .prepare('INSERT INTO offers (unit, asked, time, content) VALUES (?, ?, ?, ?)')
-        .run(unit, asked_ms, time_ms, content);
+        .prepare('INSERT INTO offers (unit, asked, time, summary, content) VALUES (?, ?, ?, ?, ?)')
+        .run(unit, Math.round(asked_ms), time_ms, summary, content);
       return Number(lastInsertRowid);
     } finally {
       this.database.pragma('synchronous = NORMAL');
@@ -51,25 +47,24 @@ export class Offers {
   between(unit: string, from_ms: number, to_ms: number, most: number): KeptOffers[] {
     const rows = this.database
       .prepare(
-        `SELECT no, unit, asked, time, content FROM offers
+        `SELECT no, asked, time, summary FROM offers
          WHERE unit = ? AND asked BETWEEN ? AND ? ORDER BY no DESC LIMIT ?`,
       )
-      .all(unit, from_ms, to_ms, most) as Row[];
-    return rows.map(kept);
+      .all(unit, from_ms, to_ms, most) as SummaryRow[];
+    return rows.map(({ no, asked: asked_ms, time: time_ms, summary }) => ({
+      ...{ no, asked_ms, time_ms },
+      ...(JSON.parse(summary) as Pick<KeptOffers, 'asked' | 'offers'>),
+    }));
   }
 
-  one(unit: string, no: number): KeptOffers | null {
-    const row = this.database
-      .prepare('SELECT no, unit, asked, time, content FROM offers WHERE unit = ? AND no = ?')
-      .get(unit, no) as Row | undefined;
-    return row === undefined ? null : kept(row);
+  /** A table as it was answered; null where none has this number. */
+  answer(unit: string, no: number): AnsweredOffers | null {
+    const content = this.database
+      .prepare('SELECT content FROM offers WHERE unit = ? AND no = ?')
+      .pluck()
+      .get(unit, no) as Buffer | undefined;
+    return content === undefined
+      ? null
+      : (JSON.parse(inflateSync(content).toString()) as AnsweredOffers);
   }
-}
-
-function kept({ no, unit, asked: asked_ms, time: time_ms, content }: Row): KeptOffers {
-  const { asked, answer } = JSON.parse(inflateSync(content).toString()) as {
-    asked: unknown;
-    answer: unknown;
-  };
-  return { no, unit, asked_ms, time_ms, asked, answer };
 }

@@ -29,7 +29,7 @@ export const HISTORY_SCHEMA = [
   // Offers as they were answered: what was sold on their strength is never rewritten.
   `CREATE TABLE offers (
      no INTEGER PRIMARY KEY AUTOINCREMENT, unit TEXT NOT NULL, asked INTEGER NOT NULL,
-     time INTEGER NOT NULL, content BLOB NOT NULL);
+     time INTEGER NOT NULL, summary TEXT NOT NULL, content BLOB NOT NULL);
    CREATE INDEX offers_by_unit ON offers (unit, asked);
    CREATE TRIGGER offers_stay BEFORE UPDATE ON offers
      BEGIN SELECT RAISE(ABORT, 'offers are never rewritten'); END;`,

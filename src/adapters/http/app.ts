@@ -16,6 +16,7 @@ import { HttpFault } from './faults.js';
 import { JsonWriter } from './json.js';
 import { alarmRoutes } from './routes/alarms.js';
 import { historyRoutes } from './routes/history.js';
+import { offerRoutes } from './routes/offers.js';
 import { planRoutes } from './routes/plan.js';
 import { statusRoutes } from './routes/status.js';
 import { streamRoutes } from './routes/stream.js';
@@ -171,6 +172,7 @@ export async function createHttpApp(
         statusRoutes,
         unitRoutes,
         planRoutes,
+        offerRoutes,
         historyRoutes,
         alarmRoutes,
         streamRoutes,

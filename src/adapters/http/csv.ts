@@ -12,3 +12,9 @@ function field(value: string | number | null): string {
   const text = String(value);
   return /[",\r\n]/.test(text) ? `"${text.replaceAll('"', '""')}"` : text;
 }
+
+/** CSV where the query says so, or else the Accept header names it and not JSON. */
+export function wantsCsv(format: 'json' | 'csv' | undefined, accept: string | undefined): boolean {
+  if (format !== undefined) return format === 'csv';
+  return /\btext\/csv\b/i.test(accept ?? '') && !/application\/json/i.test(accept ?? '');
+}

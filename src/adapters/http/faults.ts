@@ -8,6 +8,7 @@ export const FAULT_CODES = [
   'unknown_unit',
   'unknown_series',
   'unknown_event',
+  'unknown_offers',
   'unknown_route',
   'unreadable_body',
   'not_acceptable',

@@ -1,3 +1,4 @@
+import type { Estimate } from '../../core/estimate.js';
 import type { PlanAnswers, PlanQuestion } from '../../core/plan/ask.js';
 import { HttpFault } from './faults.js';
 import { limitsView } from './limitsView.js';
@@ -9,17 +10,11 @@ export const GIVEN =
   'the machine runs: outages that are not in the configuration are left out; all MWh_el at the connection point';
 
 /**
- * Asks about what lies ahead of a unit's present state, with the head that every such answer has.
+ * The estimate that an answer about what lies ahead would stand on.
  *
- * @throws HttpFault where there is no estimate, where it is stale and stale ones are refused, where
- *   the question is wrong, or where it could not be answered
+ * @throws HttpFault where there is none, or a stale one and these are refused
  */
-export async function askPlan<K extends PlanQuestion['kind']>(
-  service: PlantService,
-  now: UnitNow,
-  stale: 'refuse' | 'mark' | undefined,
-  question: PlanQuestion & { readonly kind: K },
-) {
+export function requireEstimate(now: UnitNow, stale: 'refuse' | 'mark' | undefined): Estimate {
   const unit = now.unit.id;
   if (now.estimate === null) {
     throw new HttpFault(503, 'no_estimate_yet', `unit ${unit} has no estimate yet`, {
@@ -36,6 +31,23 @@ export async function askPlan<K extends PlanQuestion['kind']>(
       { field: 'stale', value: stale ?? 'refuse', expected: 'mark' },
     );
   }
+  return now.estimate;
+}
+
+/**
+ * Asks about what lies ahead of a unit's present state, with the head that every such answer has.
+ *
+ * @throws HttpFault where there is no estimate, where it is stale and stale ones are refused, where
+ *   the question is wrong, or where it could not be answered
+ */
+export async function askPlan<K extends PlanQuestion['kind']>(
+  service: PlantService,
+  now: UnitNow,
+  stale: 'refuse' | 'mark' | undefined,
+  question: PlanQuestion & { readonly kind: K },
+) {
+  const unit = now.unit.id;
+  const estimate = requireEstimate(now, stale);
   let found: Awaited<ReturnType<PlantService['plan']>>;
   try {
     found = await service.plan(unit, question);
@@ -54,7 +66,7 @@ export async function askPlan<K extends PlanQuestion['kind']>(
       age_s: ageOf(after, time),
       valid_until: new Date(Date.parse(time) + now.unit.hours_every_s * 1000).toISOString(),
       stale: after.stale,
-      quality: now.estimate.quality,
+      quality: estimate.quality,
       given: GIVEN,
       limits: limitsView(now.unit, Date.parse(time)),
     },

@@ -1,6 +1,10 @@
 import type { UnitDefinition } from '../../core/definitions.js';
 import type { DispatchAnswer, Estimate, ProfileView } from '../../core/estimate.js';
 import type { PlanAnswer, PlanQuestion } from '../../core/plan/ask.js';
+import type { OffersAsk } from '../../core/plan/offerAsk.js';
+import type { OfferReport } from '../../core/plan/offerReport.js';
+import type { KeptOffers } from '../../core/plan/offerSummary.js';
+import type { AnsweredOffers } from '../../core/plan/offerTable.js';
 import type { ScanCounts } from '../../core/scanCounts.js';
 import type { WatchEvent } from '../../core/watch/event.js';
 import type { UnitWorth } from '../../core/worth/unitWorth.js';
@@ -53,6 +57,14 @@ export interface PlantService {
   ): Promise<{ time: string; answers: DispatchAnswer[] }>;
   /** What lies ahead of the present state, with the time of the estimate it stands on. */
   plan(unit: string, question: PlanQuestion): Promise<{ time: string; answer: PlanAnswer }>;
+  /** Keeps an offer table as it was answered, for good; gives its number. */
+  keepOffers(unit: string, asked_ms: number, asked: OffersAsk, answer: AnsweredOffers): number;
+  /** Kept tables by the time of asking, newest first. */
+  keptOffers(unit: string, from_ms: number, to_ms: number, most: number): KeptOffers[];
+  /** A kept table as it was answered; null where there is none of this number. */
+  answeredOffers(unit: string, no: number): AnsweredOffers | null;
+  /** Kept offers asked between two times against what was then delivered. */
+  offerReport(unit: string, from_ms: number, to_ms: number): Promise<OfferReport>;
   /**
    * What thermocouples are worth over the hours ahead of the present state, or over a settled day.
    * null before every store has started.

@@ -126,14 +126,13 @@ function runOf(
   if (last_ms < begins_ms + BEGINS_WITHIN_MS) return 'not_yet';
   const run = discharges.find((one) => Math.abs(one.from_ms - begins_ms) <= BEGINS_WITHIN_MS);
   if (run === undefined) return 'not_run';
-  const until = Math.min(begins_ms, run.from_ms);
-  const followed = followedPlan(offer, rows, until);
-  if (followed === null) return 'readings_missing';
-  if (!followed) return 'plan_not_followed';
   if (Math.abs(run.power_MW_el / offer.power_MW_el - 1) > POWER_WITHIN) return 'other_power';
   if (run.to_ms >= last_ms) return 'not_yet';
   if (!run.whole) return 'readings_missing';
-  return run.ended_by === null ? 'stopped_before_a_rule' : run;
+  if (run.ended_by === null) return 'stopped_before_a_rule';
+  const followed = followedPlan(offer, rows, Math.min(begins_ms, run.from_ms));
+  if (followed === null) return 'readings_missing';
+  return followed ? run : 'plan_not_followed';
 }
 
 /** null where too few scans are stored to tell. */
@@ -146,7 +145,7 @@ function followedPlan(
   const { asked_ms, legs } = offer;
   const edges = [asked_ms, until_ms, ...legs.flatMap((leg) => [leg.from_ms, leg.to_ms])];
   const near = (ms: number): boolean => edges.some((edge) => Math.abs(ms - edge) < GAP_MS);
-  const own = rows.filter((row) => row.time_ms > asked_ms && row.time_ms < until_ms);
+  const own = rows.slice(firstFrom(rows, asked_ms + 1), firstFrom(rows, until_ms));
   const told = own.filter((row) => !near(row.time_ms));
   // Asked shortly before: there is nothing to follow.
   if (until_ms - asked_ms <= 2 * GAP_MS) return true;
@@ -163,6 +162,18 @@ function followedPlan(
     return row.mode === leg.mode && Math.abs(share - 1) <= 2 * POWER_WITHIN;
   });
   return as.length >= PLAN_SHARE * told.length;
+}
+
+/** Index of the first row at or after a time. */
+function firstFrom(rows: readonly DoneRow[], time_ms: number): number {
+  let low = 0;
+  let high = rows.length;
+  while (low < high) {
+    const middle = (low + high) >> 1;
+    if ((rows[middle] as DoneRow).time_ms < time_ms) low = middle + 1;
+    else high = middle;
+  }
+  return low;
 }
 
 /** z of a two-sided 95 % interval. */

@@ -33,6 +33,9 @@ export interface OfferTable {
   readonly offers: WrittenOffer[];
 }
 
+/** An offer table as it was answered, with its head. */
+export type AnsweredOffers = OfferTable & Readonly<Record<string, unknown>>;
+
 /**
  * @param now_ms time of the estimate, from which the offers' seconds count
  * @param zone IANA name in which times are written; null = UTC

@@ -15,10 +15,15 @@ import type {
 } from '../../../src/core/estimate.js';
 import type { PlanQuestion } from '../../../src/core/plan/ask.js';
 import type { Headroom } from '../../../src/core/plan/headroom.js';
+import type { OffersAsk } from '../../../src/core/plan/offerAsk.js';
+import { type OfferReport, offerReport } from '../../../src/core/plan/offerReport.js';
+import { type KeptOffers, summaryOf } from '../../../src/core/plan/offerSummary.js';
+import type { AnsweredOffers } from '../../../src/core/plan/offerTable.js';
 import type { ScanCounts } from '../../../src/core/scanCounts.js';
 import type { WatchEvent } from '../../../src/core/watch/event.js';
 import type { UnitWorth } from '../../../src/core/worth/unitWorth.js';
 import { COLD, HOT, unitOf } from './scriptedDefinitions.js';
+import { scriptedOffers } from './scriptedOffers.js';
 
 const START_MS = Date.UTC(2026, 0, 31, 6);
 
@@ -203,12 +208,43 @@ export class ScriptedPlant implements PlantService {
     if (this.failPlan !== null) throw this.failPlan;
     if (this.now(unit) === undefined) throw new RangeError(`unit: ${unit}`);
     this.planAsked.push(question);
+    if (question.kind === 'offers') {
+      const charge_MWh = this.moment.charged * 16;
+      const answer = scriptedOffers(question.ask, Date.parse(this.time()), charge_MWh);
+      return { time: this.time(), answer };
+    }
+    if (question.kind !== 'headroom') throw new RangeError(`not scripted: ${question.kind}`);
     const answer = question.ask.powers_W.map((power_W): Headroom => {
       const { hours, energy_MWh_el } = this.answer(power_W / 1e6);
       const power_MW_el = power_W / 1e6;
       return { power_MW_el, hours, energy_MWh_el, ends_by: 'hot_outlet', refused: null };
     });
     return { time: this.time(), answer };
+  }
+
+  /** Offer tables that were to be kept, and what the report of them says. */
+  readonly kept: { summary: KeptOffers; answer: AnsweredOffers }[] = [];
+  report: OfferReport | null = null;
+
+  keepOffers(_unit: string, asked_ms: number, asked: OffersAsk, answer: AnsweredOffers): number {
+    const no = this.kept.length + 1;
+    const time_ms = Date.parse(String(answer.time));
+    const offers = answer.offers.map(summaryOf);
+    this.kept.push({ summary: { no, asked_ms, time_ms, asked, offers }, answer });
+    return no;
+  }
+
+  keptOffers(_unit: string, from_ms: number, to_ms: number, most: number): KeptOffers[] {
+    const own = this.kept.map(({ summary }) => summary).reverse();
+    return own.filter((one) => one.asked_ms >= from_ms && one.asked_ms <= to_ms).slice(0, most);
+  }
+
+  answeredOffers(_unit: string, no: number): AnsweredOffers | null {
+    return this.kept[no - 1]?.answer ?? null;
+  }
+
+  async offerReport(): Promise<OfferReport> {
+    return this.report ?? offerReport(this.units[0]!, [], []);
   }
 
   async hours(unit: string, powers_MW: readonly number[]) {

@@ -1,5 +1,5 @@
 import { z } from 'zod';
-import { toCsv } from '../csv.js';
+import { toCsv, wantsCsv } from '../csv.js';
 import { HttpFault, wrongValue } from '../faults.js';
 import { faults, type Routes, unitOf } from '../routes.js';
 import { unitHistorySchema } from '../schema/answers.js';
@@ -39,11 +39,6 @@ function chosenSeries(service: PlantService, now: UnitNow, asked: readonly strin
     `unit ${now.unit.id} has no series ${JSON.stringify(unknown)}; ${expected}`,
     { field: 'series', value: unknown, expected },
   );
-}
-
-function wantsCsv(format: 'json' | 'csv' | undefined, accept: string | undefined): boolean {
-  if (format !== undefined) return format === 'csv';
-  return /\btext\/csv\b/i.test(accept ?? '') && !/application\/json/i.test(accept ?? '');
 }
 
 /** GET /api/units/{unit}/history as JSON or CSV. */
