@@ -119,6 +119,11 @@ export function cut(span: Span, minutes: number): Span[] {
   }));
 }
 
+/** What clocks of the zone show beyond UTC at an instant [ms]; null = UTC. */
+export function offsetOf(zone: string | null, ms: number): number {
+  return DateTime.fromMillis(ms, { zone: zone === null ? 'utc' : zoneOf(zone) }).offset * 60_000;
+}
+
 /**
  * An instant in ISO 8601 with the offset that the zone has then, to the second where it is whole;
  * without a zone in UTC.

@@ -1,6 +1,5 @@
-import { DateTime } from 'luxon';
 import type { Mode, UnitDefinition } from '../definitions.js';
-import { writtenIn } from './localTime.js';
+import { offsetOf, writtenIn } from './localTime.js';
 import type { BidPrices } from './newsvendor.js';
 
 /** Lengths of a block [s]: a quarter of an hour, half an hour, an hour. */
@@ -98,7 +97,7 @@ export function requireOffers(unit: UnitDefinition, now_ms: number, ask: OffersA
 /** The grid of blocks: clock times of the connection's zone, in UTC without one. */
 export function nextOnGrid(unit: UnitDefinition, from_ms: number, block_s: number): number {
   const step = block_s * 1000;
-  const shift = offsetOf(unit, from_ms);
+  const shift = offsetOf(unit.limits.connection?.time_zone ?? null, from_ms);
   return Math.ceil((from_ms + shift) / step) * step - shift;
 }
 
@@ -170,10 +169,4 @@ function requireWhole(field: string, value: number | undefined, block_s: number)
 
 function need(sound: boolean, field: string, value: unknown, expected: string): void {
   if (!sound) throw new WrongQuestion(field, value, expected);
-}
-
-/** Of the connection's zone against UTC at an instant [ms]. */
-function offsetOf(unit: UnitDefinition, ms: number): number {
-  const zone = unit.limits.connection?.time_zone ?? 'utc';
-  return DateTime.fromMillis(ms, { zone }).offset * 60_000;
 }
