@@ -1,12 +1,7 @@
 import type { Direction, Mode, OperationDefinition, UnitDefinition } from '../definitions.js';
-import {
-  type Ceiling,
-  type CommandCause,
-  directionOf,
-  type Leg,
-  requireLegs,
-  signedPower,
-} from './leg.js';
+import { descentFrom, type Part, partsOf, startFrom } from './commandParts.js';
+import { rampWithin, SLIVER_S } from './commandRamp.js';
+import { type Ceiling, type CommandCause, type Leg, requireLegs, signedPower } from './leg.js';
 
 /** A stretch of commanded power, linear in time. Pieces follow each other without gaps. */
 export interface Piece {
@@ -17,7 +12,7 @@ export interface Piece {
   /** Net power at the connection point at both ends [W], + = given. */
   readonly power0_W: number;
   readonly power1_W: number;
-  /** Index of the leg that it serves; -1 = none. A ramp down belongs to the leg it ends. */
+  /** Index of the leg it belongs to; -1 = none, as for what leads up to a leg. A ramp down belongs to the leg it ends. */
   readonly leg: number;
   readonly purpose: 'run' | 'ramp' | 'start_up' | 'change_over' | 'stand';
 }
@@ -28,7 +23,7 @@ export interface Unmet {
   readonly cause: CommandCause;
   readonly from_s: number;
   readonly to_s: number;
-  /** Power asked for less that commanded [W], at least 0. */
+  /** Power asked for less that commanded [W], at least 0; its mean over that time. */
   readonly missing_W: number;
 }
 
@@ -63,11 +58,14 @@ export const AT_ONCE: OperationDefinition = {
  * What the machine is told to do so that a plan is met as well as its limits allow, before any bed
  * is asked.
  *
- * A start-up (or change-over) is done ahead of a leg where the unit stands long enough before it;
- * else the leg begins late, which is unmet. A ramp begins at the edge of a leg, upwards and
- * downwards: what a ramp up lacks within its leg, the ramp down gives after it. Power above the
- * greatest or a ceiling is cut down to it; a power below the least cannot be run at all, nor one
- * that a ceiling cuts below the least: the unit stands then.
+ * A start-up is done ahead of a leg where the unit stands long enough before it, and no earlier than
+ * the change-over time after the end of the other direction; else the leg begins late, which is
+ * unmet. Where it could not end before the leg does, the unit is not started. A ramp begins at the
+ * edge of a leg, upwards and downwards: what a ramp up lacks within its leg, the ramp down gives
+ * after it; a run that could not get to its least power is not begun. Ahead of a ceiling it ends in time: power is never above one. Power above the greatest
+ * or a ceiling is cut down to it; a power below the least cannot be run at all, nor one that a
+ * ceiling cuts below the least: the unit stands then. No start-up is made in an outage of its
+ * direction, nor while less may be taken than it draws.
  *
  * @param legs see `requireLegs`; between them the unit stands
  * @param ceilings in any order; where several hold, the least counts
@@ -83,154 +81,204 @@ export function commandOf(
 ): Command {
   requireLegs(legs);
   const operation = unit.limits.operation ?? AT_ONCE;
-  const stand_W = -unit.machine.auxiliary_standing_W;
-  const pieces: Piece[] = [];
-  const unmet: Unmet[] = [];
-  let at = 0;
-  let mode: Mode = before.mode;
-  let power = before.mode === 'stand' ? 0 : before.power_W;
-  let leg = -1;
-  let last: Direction | null = before.mode === 'stand' ? before.last : before.mode;
-  /** When the unit came to stand, seen from the plan's start. */
-  let stoodFrom = -before.stood_s;
-
-  const put = (
-    to_s: number,
-    own: Mode,
-    power0_W: number,
-    power1_W: number,
-    of: number,
-    purpose: Piece['purpose'],
-  ): void => {
-    const cut = Math.min(to_s, end_s);
-    if (!(cut > at)) return;
-    const share = (cut - at) / (to_s - at);
-    const last_W = to_s === cut ? power1_W : power0_W + (power1_W - power0_W) * share;
-    pieces.push({ from_s: at, to_s: cut, mode: own, power0_W, power1_W: last_W, leg: of, purpose });
-    at = cut;
-  };
-  const rampDown = (): void => {
-    if (mode === 'stand') return;
-    const rate = operation.ramp_W_s[mode];
-    if (rate !== null) put(at + Math.abs(power) / rate, mode, power, 0, leg, 'ramp');
-    last = mode;
-    mode = 'stand';
-    power = 0;
-    stoodFrom = at;
-  };
-  const standUntil = (to_s: number, of = -1): void => {
-    rampDown();
-    put(to_s, 'stand', stand_W, stand_W, of, 'stand');
-  };
-
-  for (const part of cutAtCeilings(legs, ceilings)) {
-    const direction = directionOf(part.leg);
-    if (direction === null) {
-      standUntil(part.from_s);
-      standUntil(part.to_s, part.index);
-      continue;
-    }
-    const asked = part.leg.power_W;
-    const limits = unit.limits[direction];
-    let given = asked;
-    let cause: CommandCause | null = null;
-    if (given > limits.power_max_W) {
-      given = limits.power_max_W;
-      cause = 'above_greatest_power';
-    }
-    const ceiling = direction === 'charge' ? part.charge_max_W : part.discharge_max_W;
-    if (given > ceiling) {
-      given = ceiling;
-      cause = part.cause ?? 'connection';
-    }
-    if (given < limits.power_min_W || given === 0) {
-      unmet.push({
-        leg: part.index,
-        cause: cause ?? 'below_least_power',
-        from_s: part.from_s,
-        to_s: part.to_s,
-        missing_W: asked,
-      });
-      standUntil(part.from_s);
-      standUntil(part.to_s, part.index);
-      continue;
+  const parts = partsOf(unit, legs, ceilings);
+  const line = new CommandLine(unit, before, end_s);
+  parts.forEach((part, i) => {
+    const { direction, index } = part;
+    if (direction === null || part.given_W === 0) {
+      line.idle(part);
+      if (part.cause !== null) line.lacks(index, part.cause, part.from_s, part.to_s, part.asked_W);
+      return;
     }
     // A pause between two legs is one the unit stands through.
-    if (mode !== direction || part.from_s > at) {
-      if (part.from_s > at || mode !== direction) rampDown();
-      const cold = part.from_s - stoodFrom > operation.start.cold_after_s;
-      const start = operation.start[cold ? 'cold' : 'warm'];
-      const over_s = last !== null && last !== direction ? operation.change_over_s : 0;
-      const lead_s = over_s + start.time_s;
-      const begins = Math.max(at, part.from_s - lead_s);
-      put(begins, 'stand', stand_W, stand_W, -1, 'stand');
-      put(begins + over_s, 'stand', stand_W, stand_W, -1, 'change_over');
-      const draw_W = start.time_s > 0 ? -start.energy_J / start.time_s : 0;
-      put(begins + lead_s, 'stand', draw_W, draw_W, -1, 'start_up');
-      if (at > part.from_s) {
-        unmet.push({
-          leg: part.index,
-          cause: over_s > 0 ? 'change_over' : 'start_up',
-          from_s: part.from_s,
-          to_s: Math.min(at, part.to_s),
-          missing_W: asked,
-        });
+    if (line.mode !== direction || part.from_s > line.at) {
+      const ramped = line.rampDown();
+      const from_s = Math.max(line.at, part.from_s);
+      const cold = from_s - line.stoodFrom > operation.start.cold_after_s;
+      const { time_s, energy_J } = operation.start[cold ? 'cold' : 'warm'];
+      const turned = line.last !== null && line.last !== direction;
+      const free_s = turned ? line.stoodFrom + operation.change_over_s : line.at;
+      const draw_W = time_s > 0 ? energy_J / time_s : 0;
+      const wanted_s = Math.max(line.at, free_s, part.from_s - time_s);
+      const start = startFrom(ceilings, direction, wanted_s, time_s, draw_W);
+      const ready_s = start.begins_s + time_s;
+      const turns = turned && (ramped || free_s > line.at);
+      line.late = start.cause ?? (turns ? 'change_over' : 'start_up');
+      if (!reachesLeast(unit, ceilings, direction, ready_s, runsUntil(parts, i))) {
+        const why = ready_s > part.from_s ? line.late : 'below_least_power';
+        line.lacks(index, why, part.from_s, part.to_s, part.asked_W);
+        line.idle(part);
+        return;
       }
-      mode = direction;
-      power = 0;
+      if (turned) {
+        const over_s = start.begins_s - operation.change_over_s;
+        if (over_s - line.at > SLIVER_S) line.stand(over_s);
+        line.put(start.begins_s, 'stand', line.stand_W, line.stand_W, -1, 'change_over');
+      }
+      line.stand(start.begins_s);
+      line.put(ready_s, 'stand', -draw_W, -draw_W, -1, 'start_up');
+      line.mode = direction;
+      line.last = direction;
+      line.power_W = 0;
     }
-    leg = part.index;
-    last = direction;
-    if (cause !== null && part.to_s > at) {
-      const missing_W = asked - given;
-      unmet.push({ leg, cause, from_s: Math.max(at, part.from_s), to_s: part.to_s, missing_W });
+    line.leg = index;
+    if (line.at > part.from_s) {
+      line.lacks(index, line.late, part.from_s, Math.min(line.at, part.to_s), part.asked_W);
     }
-    const target = signedPower(direction, given);
+    const missing_W = part.asked_W - part.given_W;
+    if (part.cause !== null) {
+      line.lacks(index, part.cause, Math.max(line.at, part.from_s), part.to_s, missing_W);
+    }
     const rate = operation.ramp_W_s[direction];
-    if (rate !== null && power !== target) {
-      const until = at + Math.abs(target - power) / rate;
-      const to_s = Math.min(until, Math.max(at, part.to_s));
-      const reached = power + ((target - power) * (to_s - at)) / (until - at);
-      put(to_s, direction, power, reached, leg, 'ramp');
-      power = reached;
-    } else power = target;
-    put(part.to_s, direction, power, power, leg, 'run');
-    if (at >= end_s) break;
-  }
-  standUntil(end_s);
-  return { pieces, unmet };
-}
-
-interface Part {
-  readonly leg: Leg;
-  readonly index: number;
-  readonly from_s: number;
-  readonly to_s: number;
-  readonly charge_max_W: number;
-  readonly discharge_max_W: number;
-  readonly cause: Ceiling['cause'] | null;
-}
-
-/** Legs cut where a ceiling begins or ends, each part with the least that holds there. */
-function cutAtCeilings(legs: readonly Leg[], ceilings: readonly Ceiling[]): Part[] {
-  const edges = [...new Set(ceilings.flatMap((c) => [c.from_s, c.to_s]))].sort((a, b) => a - b);
-  return legs.flatMap((leg, index) => {
-    const inside = edges.filter((edge) => edge > leg.from_s && edge < leg.to_s);
-    const cuts = [leg.from_s, ...inside, leg.to_s];
-    return cuts.slice(1).map((to_s, i): Part => {
-      const from_s = cuts[i] as number;
-      let charge_max_W = Number.POSITIVE_INFINITY;
-      let discharge_max_W = Number.POSITIVE_INFINITY;
-      let cause: Ceiling['cause'] | null = null;
-      for (const ceiling of ceilings) {
-        if (ceiling.from_s > from_s || ceiling.to_s <= from_s) continue;
-        const own = leg.mode === 'charge' ? ceiling.charge_max_W : ceiling.discharge_max_W;
-        const most = leg.mode === 'charge' ? charge_max_W : discharge_max_W;
-        if (own < most) cause = ceiling.cause;
-        charge_max_W = Math.min(charge_max_W, ceiling.charge_max_W);
-        discharge_max_W = Math.min(discharge_max_W, ceiling.discharge_max_W);
+    const descent = descentFrom(unit, ceilings, direction, part.to_s, rate ?? 0);
+    const steps = rampWithin(line.at, line.power_W, part.given_W, part.to_s, rate, descent.level_W);
+    for (const { to_s, power_W, purpose } of steps) {
+      const from_s = line.at;
+      const power0_W = purpose === 'run' ? power_W : line.power_W;
+      const mean_W = line.run(to_s, power0_W, power_W, purpose);
+      // Falling below what the leg has it does so ahead of a ceiling.
+      if (power_W < Math.min(power0_W, part.given_W)) {
+        line.lacks(index, descent.cause, from_s, line.at, part.given_W - mean_W);
       }
-      return { leg, index, from_s, to_s, charge_max_W, discharge_max_W, cause };
-    });
+    }
   });
+  line.rampDown();
+  line.stand(end_s);
+  return { pieces: line.pieces, unmet: line.unmet };
+}
+
+/** Whether a run that is ready at a time gets to its least power before it has to be over. */
+function reachesLeast(
+  unit: UnitDefinition,
+  ceilings: readonly Ceiling[],
+  direction: Direction,
+  ready_s: number,
+  to_s: number,
+): boolean {
+  const rate = unit.limits.operation?.ramp_W_s[direction] ?? null;
+  if (!(ready_s < to_s) || rate === null) return ready_s < to_s;
+  const { power_min_W } = unit.limits[direction];
+  const at_s = ready_s + power_min_W / rate;
+  // Within the run ceilings are above the least: only what comes after it can be in the way.
+  const { level_W } = descentFrom(unit, ceilings, direction, to_s, rate);
+  return at_s <= to_s && level_W - rate * at_s >= power_min_W;
+}
+
+/** Until when the unit could run on from a part without a pause [s]. */
+function runsUntil(parts: readonly Part[], i: number): number {
+  let last = parts[i] as Part;
+  for (let k = i + 1; k < parts.length; k++) {
+    const next = parts[k] as Part;
+    if (next.from_s !== last.to_s || next.direction !== last.direction || next.given_W === 0) break;
+    last = next;
+  }
+  return last.to_s;
+}
+
+/** The command as far as it is written: pieces one after the other, and how the unit runs then. */
+class CommandLine {
+  readonly pieces: Piece[] = [];
+  readonly unmet: Unmet[] = [];
+  at = 0;
+  mode: Mode;
+  /** Size of the power [W]. */
+  power_W: number;
+  /** The leg that runs. */
+  leg = -1;
+  last: Direction | null;
+  /** When the unit came to stand, seen from the plan's start. */
+  stoodFrom: number;
+  /** Why the run at hand began late, if it did. */
+  late: CommandCause = 'start_up';
+  readonly stand_W: number;
+  /** Parts of legs in which the unit stands, by request or because it cannot run. */
+  private readonly idles: Part[] = [];
+
+  constructor(
+    private readonly unit: UnitDefinition,
+    before: RunningBefore,
+    private readonly end_s: number,
+  ) {
+    this.mode = before.mode;
+    this.power_W = before.mode === 'stand' ? 0 : Math.abs(before.power_W);
+    this.last = before.mode === 'stand' ? before.last : before.mode;
+    this.stoodFrom = -before.stood_s;
+    this.stand_W = -unit.machine.auxiliary_standing_W;
+  }
+
+  put(
+    to_s: number,
+    mode: Mode,
+    power0_W: number,
+    power1_W: number,
+    leg: number,
+    purpose: Piece['purpose'],
+  ): void {
+    const cut = Math.min(to_s, this.end_s);
+    if (!(cut > this.at)) return;
+    const share = (cut - this.at) / (to_s - this.at);
+    const last_W = to_s === cut ? power1_W : power0_W + (power1_W - power0_W) * share;
+    this.pieces.push({
+      from_s: this.at,
+      to_s: cut,
+      mode,
+      power0_W,
+      power1_W: last_W,
+      leg,
+      purpose,
+    });
+    this.at = cut;
+  }
+
+  /**
+   * Sizes of power [W]; a zero is never negative.
+   *
+   * @returns mean of what was put [W]
+   */
+  run(to_s: number, power0_W: number, power1_W: number, purpose: 'run' | 'ramp'): number {
+    const signed = (power: number): number => signedPower(this.mode, power) + 0;
+    this.put(to_s, this.mode, signed(power0_W), signed(power1_W), this.leg, purpose);
+    this.power_W = power1_W;
+    const put = this.pieces[this.pieces.length - 1];
+    return put === undefined ? power0_W : Math.abs(put.power0_W + put.power1_W) / 2;
+  }
+
+  /** @returns whether that took any time */
+  rampDown(): boolean {
+    if (this.mode === 'stand') return false;
+    const rate = (this.unit.limits.operation ?? AT_ONCE).ramp_W_s[this.mode];
+    const from_s = this.at;
+    const time_s = rate === null ? 0 : this.power_W / rate;
+    if (time_s > SLIVER_S) this.run(this.at + time_s, this.power_W, 0, 'ramp');
+    this.last = this.mode;
+    this.mode = 'stand';
+    this.power_W = 0;
+    this.stoodFrom = this.at;
+    return this.at > from_s;
+  }
+
+  idle(part: Part): void {
+    this.idles.push(part);
+  }
+
+  /** Stands until a time; what falls into a leg that stands belongs to it. */
+  stand(to_s: number): void {
+    while (to_s > this.at && this.at < this.end_s) {
+      const own = this.idles.find((idle) => idle.from_s <= this.at && idle.to_s > this.at);
+      const next = this.idles.find((idle) => idle.from_s > this.at);
+      const until = Math.min(to_s, own?.to_s ?? next?.from_s ?? Number.POSITIVE_INFINITY);
+      this.put(until, 'stand', this.stand_W, this.stand_W, own?.index ?? -1, 'stand');
+    }
+  }
+
+  lacks(
+    leg: number,
+    cause: CommandCause,
+    from_s: number,
+    until_s: number,
+    missing_W: number,
+  ): void {
+    const to_s = Math.min(until_s, this.end_s);
+    if (to_s > from_s && missing_W > 0) this.unmet.push({ leg, cause, from_s, to_s, missing_W });
+  }
 }
