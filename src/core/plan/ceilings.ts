@@ -51,11 +51,11 @@ function windowsBetween(
   const found: Ceiling[] = [];
   // From the day before: a window may run over midnight.
   let day = DateTime.fromMillis(from_ms, { zone }).startOf('day').minus({ days: 1 });
-  for (; day.toMillis() < to_ms; day = day.plus({ days: 1 })) {
+  for (; day.toMillis() < to_ms; day = day.plus({ days: 1 }).startOf('day')) {
     for (const window of connection.windows) {
       const over = window.to_min <= window.from_min;
-      const begins = clock(day, window.from_min);
-      const ends = clock(over ? day.plus({ days: 1 }) : day, window.to_min);
+      const begins = clock(day, window.from_min, 'first');
+      const ends = clock(over ? day.plus({ days: 1 }) : day, window.to_min, 'last');
       if (ends <= from_ms || begins >= to_ms || ends <= begins) continue;
       found.push({
         from_s: begins,
@@ -69,8 +69,30 @@ function windowsBetween(
   return found;
 }
 
-/** Epoch [ms] at which the clocks of a day show so many minutes after midnight; 1440 = its end. */
-function clock(day: DateTime, minutes: number): number {
-  if (minutes >= DAY_MIN) return day.plus({ days: 1 }).toMillis();
-  return day.set({ hour: Math.floor(minutes / 60), minute: minutes % 60 }).toMillis();
+/**
+ * Epoch [ms] at which the clocks of a day show so many minutes after midnight; 1440 = its end. Where
+ * they pass over that, when they do; where they show it twice, the one that makes a window the longer,
+ * so that no hour of it is missed.
+ */
+function clock(day: DateTime, minutes: number, which: 'first' | 'last'): number {
+  if (minutes >= DAY_MIN) return day.plus({ days: 1 }).startOf('day').toMillis();
+  const hour = Math.floor(minutes / 60);
+  const minute = minutes % 60;
+  const shown = day.set({ hour, minute });
+  if (shown.hour !== hour || shown.minute !== minute) return changeBefore(shown);
+  const both = shown.getPossibleOffsets().map((one) => one.toMillis());
+  return which === 'first' ? Math.min(...both) : Math.max(...both);
+}
+
+/** The last change of the clocks before a time that one has moved, within a day [epoch ms]. */
+function changeBefore(moved: DateTime): number {
+  const offsetAt = (ms: number) => DateTime.fromMillis(ms, { zone: moved.zone }).offset;
+  let after = moved.toMillis();
+  let before = after - DAY_MIN * 60_000;
+  while (after - before > 1) {
+    const middle = Math.floor((before + after) / 2);
+    if (offsetAt(middle) === moved.offset) after = middle;
+    else before = middle;
+  }
+  return after;
 }
