@@ -96,6 +96,8 @@ describe('windows of a connection', () => {
     // In Beirut the clocks go from 00:00 to 01:00 on 29 March 2026.
     expect(windowsOn('2026-03-29', [window('00:00', '02:00')], 'Asia/Beirut')).toEqual([
       ['03-28T22:00', '03-28T23:00'],
+      // What is asked about begins at 01:00 then, and so ends in the next day's window.
+      ['03-29T21:00', '03-29T23:00'],
     ]);
   });
 
