@@ -24,6 +24,12 @@ export interface Evaluation {
   /** Per run: when it stops [s], and from when on it needs more than the greatest flow [s]. */
   readonly stop_s: readonly Float64Array[];
   readonly derate_s: readonly Float64Array[];
+  /** Times of each rule in each run [s], by run and rule; absent = not reached. */
+  readonly samples: readonly {
+    readonly e: number;
+    readonly rule: number;
+    readonly values: Float64Array;
+  }[];
   /** How far past their ends runs were followed [s]; Infinity above stands for later than that. */
   readonly beyond_s: number;
 }
@@ -55,7 +61,7 @@ export function evaluate(
 
 function samplesOf(
   spread: PlanSpread,
-): Pick<Evaluation, 'first_s' | 'rule' | 'stop_s' | 'derate_s'> {
+): Pick<Evaluation, 'first_s' | 'rule' | 'stop_s' | 'derate_s' | 'samples'> {
   const { episodes } = spread.course;
   const never = (): Float64Array[] =>
     episodes.map(() => new Float64Array(NORMAL_COUNT).fill(Number.POSITIVE_INFINITY));
@@ -63,18 +69,20 @@ function samplesOf(
   const stop_s = never();
   const derate_s = never();
   const rule = episodes.map(() => new Int8Array(NORMAL_COUNT).fill(-1));
-  ruleSamples(spread).forEach((samples, a) => {
-    const q = spread.times[a] as (typeof spread.times)[number];
-    const own = q.rule === FLOW ? derate_s : stop_s;
-    samples.forEach((value, k) => {
-      const e = q.episode;
+  const samples = ruleSamples(spread).map((values, a) => {
+    const { episode: e, rule: r } = spread.times[a] as (typeof spread.times)[number];
+    return { e, rule: r, values };
+  });
+  for (const { e, rule: r, values } of samples) {
+    const own = r === FLOW ? derate_s : stop_s;
+    values.forEach((value, k) => {
       if (value < (own[e]?.[k] as number)) (own[e] as Float64Array)[k] = value;
       if (!(value < (first_s[e]?.[k] as number))) return;
       (first_s[e] as Float64Array)[k] = value;
-      (rule[e] as Int8Array)[k] = q.rule;
+      (rule[e] as Int8Array)[k] = r;
     });
-  });
-  return { first_s, rule, stop_s, derate_s };
+  }
+  return { first_s, rule, stop_s, derate_s, samples };
 }
 
 /**

@@ -1,4 +1,5 @@
-import { DateTime, IANAZone } from 'luxon';
+import { DateTime } from 'luxon';
+import { isTimeZone as isKnown } from './ceilings.js';
 
 /** Between two instants [ms since 1970-01-01T00:00:00Z]. */
 export interface Span {
@@ -17,9 +18,15 @@ const WRITTEN =
   /^(\d{4})-(\d\d)-(\d\d)[Tt ](\d\d):(\d\d)(?::(\d\d)(?:[.,](\d{1,9}))?)?\s?([Zz]|[+-]\d\d:?\d\d)?$/;
 const DATE = /^(\d{4})-(\d\d)-(\d\d)$/;
 
+/** Answers of `isTimeZone`: one costs as much as some steps of a march. */
+const asked = new Map<string, boolean>();
+
 /** Whether this is a name of the IANA time zone database, such as Europe/Paris or Etc/UTC. */
 export function isTimeZone(zone: string): boolean {
-  return IANAZone.isValidZone(zone);
+  const known = asked.get(zone) ?? isKnown(zone);
+  // Names come from outside: not without end.
+  if (asked.size < 1000) asked.set(zone, known);
+  return known;
 }
 
 /**

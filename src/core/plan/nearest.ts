@@ -2,7 +2,7 @@ import type { Direction, UnitDefinition } from '../definitions.js';
 import { type Evaluation, holding } from './evaluation.js';
 import { directionOf, type Leg } from './leg.js';
 import type { Planner } from './planner.js';
-import { type TrialBase, trial, trialBase } from './trial.js';
+import { type Trial, type TrialBase, trial, trialBase } from './trial.js';
 import { withoutUnmet } from './withoutUnmet.js';
 
 /** The schedule nearest to one asked for that holds at a certainty. */
@@ -27,9 +27,11 @@ export interface DrawnIn {
 
 /** Where no least power is set a factor goes down to this. */
 const LEAST_FACTOR = 0.01;
-/** Halvings of a factor's range. */
-const HALVINGS = 10;
+/** Of a factor's range, and at least a minute of a run. */
+const FINEST = 1000;
 const FULL_EVALUATIONS = 4;
+/** Times that charging and discharging are sought in turns. */
+const TURNS = 3;
 /** Share of the risk by which what is found may be surer than asked for. */
 const SURER = 0.2;
 
@@ -37,9 +39,9 @@ const SURER = 0.2;
  * The nearest schedule that holds with a certainty. Nearest means: one common factor, the greatest
  * that holds, on all discharging powers; where no factor holds at or above the least power, with the
  * smallest factor the end of the last discharge is drawn in, to the latest whole minute that holds,
- * and that of the one before where nothing of the last is left. Where a charge cannot be held, the
- * same is done with charging powers first, so that charges leave at most half of the risk. What
- * machine, connection and outages still do not allow is then taken out.
+ * and that of the one before where nothing of the last is left. Where charges cannot be held, the
+ * same is done with charging powers; where neither can, each direction may take half of the risk.
+ * What machine, connection and outages still do not allow is then taken out.
  *
  * Found by bisection on one cheap march per try with the spread of a full evaluation (see trial), then
  * evaluated in full; where that falls short of the certainty or is much surer, sought anew from there.
@@ -69,7 +71,7 @@ export function nearestLegs(
     if (n === FULL_EVALUATIONS - 1) break;
     // A little above, so that cheap and full evaluation seldom disagree.
     const target = certainty + (1 - certainty) * 0.02 * 3 ** n;
-    const next = seek(planner, legs, trialBase(planner, own), target);
+    const next = seek(planner, legs, trialBase(planner, own), target, found);
     if (n > 0 && sameFactors(next, found)) break;
     found = next;
     own = planner.evaluate(planner.command(found.legs));
@@ -101,7 +103,14 @@ function tookOut(found: Sought, legs: readonly Leg[]): boolean {
   return energyOf(plain) - energyOf(found.legs) > 1e-9 * energyOf(plain);
 }
 
-function seek(planner: Planner, legs: readonly Leg[], base: TrialBase, target: number): Sought {
+/** @param before what was found before: where to look first */
+function seek(
+  planner: Planner,
+  legs: readonly Leg[],
+  base: TrialBase,
+  target: number,
+  before: Sought,
+): Sought {
   const { unit } = planner.outlook.model;
   const factor = { charge: 1, discharge: 1 };
   const drawn: Record<Direction, DrawnIn[]> = { charge: [], discharge: [] };
@@ -109,16 +118,20 @@ function seek(planner: Planner, legs: readonly Leg[], base: TrialBase, target: n
     const ends = [...drawn.charge, ...drawn.discharge];
     return withoutUnmet(planner, drawIn(scale(legs, factor), ends));
   };
-  const odds = (direction?: Direction): number => {
-    const { episodes, first_s } = trial(planner, base, made());
-    return holding(episodes, first_s, direction);
+  const tried = new Map<string, Trial>();
+  const risk = (direction?: Direction): number => {
+    const key = JSON.stringify([factor, drawn]);
+    const known = tried.get(key) ?? trial(planner, base, made());
+    tried.set(key, known);
+    return 1 - holding(known.episodes, known.first_s, direction);
   };
   const mend = (direction: Direction, holds: () => boolean): void => {
     drawn[direction] = [];
     factor[direction] = 1;
     if (holds()) return;
     const least = leastFactor(unit, legs, direction);
-    const held = greatest(least, 1, HALVINGS, (value) => {
+    const near = before.factor[direction];
+    const held = greatest([least, 1], near, (value) => {
       factor[direction] = value;
       return holds();
     });
@@ -129,12 +142,18 @@ function seek(planner: Planner, legs: readonly Leg[], base: TrialBase, target: n
       return holds();
     });
   };
-  const charges = target + (1 - target) / 2;
-  // What discharges no longer take is in the way of later charges: once more then.
-  for (let n = 0; n < 2; n++) {
-    mend('charge', () => odds('charge') >= charges);
-    mend('discharge', () => odds() >= target);
-    if (odds() >= target) break;
+  const all = 1 - target;
+  if (risk() > all) {
+    const asked = { charge: risk('charge'), discharge: risk('discharge') };
+    // One direction may take what the other leaves, where that is most of it; else each its half.
+    const left = (other: number): number => (other <= all / 2 ? all - other : all / 2);
+    const most = { charge: left(asked.discharge), discharge: left(asked.charge) };
+    // What discharges no longer take is in the way of later charges: in turns.
+    for (let n = 0; n < TURNS; n++) {
+      mend('charge', () => risk('charge') <= most.charge);
+      mend('discharge', () => risk('discharge') <= most.discharge);
+      if (risk('charge') <= most.charge) break;
+    }
   }
   return { legs: made(), factor, drawn_in: [...drawn.charge, ...drawn.discharge] };
 }
@@ -147,17 +166,37 @@ function leastFactor(unit: UnitDefinition, legs: readonly Leg[], direction: Dire
   return Math.min(1, Math.max(LEAST_FACTOR, (least_W / Math.min(...powers)) * (1 + 1e-12)));
 }
 
-/** Greatest value that holds, of a range whose upper end does not; null where none does. */
+/**
+ * Greatest value that holds, of a range whose upper end does not, to its `FINEST` part; null where
+ * none does. A value within the range that was near before is looked at first, in steps that double.
+ */
 function greatest(
-  least: number,
-  most: number,
-  halvings: number,
+  [least, most]: readonly [number, number],
+  near: number,
   holds: (value: number) => boolean,
 ): number | null {
-  if (least >= most || !holds(least)) return null;
-  let low = least;
+  const range = most - least;
+  if (!(range > 0)) return null;
+  let low = Number.NaN;
   let high = most;
-  for (let n = 0; n < halvings; n++) {
+  if (near > least && near < most) {
+    let step = range / 32;
+    const up = holds(near);
+    if (up) low = near;
+    else high = near;
+    for (let at = near + (up ? step : -step); at > least && at < most; ) {
+      if (holds(at)) low = at;
+      else high = at;
+      if (Number.isFinite(low) && high < most) break;
+      step *= 2;
+      at += up ? step : -step;
+    }
+  }
+  if (Number.isNaN(low)) {
+    if (!holds(least)) return null;
+    low = least;
+  }
+  while (high - low > range / FINEST) {
     const middle = (low + high) / 2;
     if (holds(middle)) low = middle;
     else high = middle;
@@ -201,9 +240,8 @@ function drawnIn(
       continue;
     }
     const minutes = (run.to_s - run.from_s) / 60;
-    const halvings = Math.ceil(Math.log2(Math.max(2, minutes)));
     const at = (value: number): number => run.from_s + Math.floor(value) * 60;
-    const most = greatest(0, minutes, halvings, (value) => holds(with_(at(value))));
+    const most = greatest([0, minutes], 0, (value) => holds(with_(at(value))));
     ends.push({ direction, asked_s: run.to_s, end_s: at(most ?? 0) });
     return ends;
   }

@@ -29,10 +29,10 @@ export function trialBase(planner: Planner, evaluation: Evaluation): TrialBase {
 }
 
 /**
- * When the runs of some legs break, by one march on the bare beds: a run breaks as the like run of
- * the base does (same direction, most of its time in common), its time since the run's start changed
- * in the proportion in which that march changes it. So the base's errors, its spread and what the
- * bare beds leave out are kept in proportion.
+ * When the runs of some legs break, by one march on the bare beds: each rule's time in a run is that
+ * of the base's like run (same direction, most of its time in common), its time since the run's start
+ * changed in the proportion in which that march changes it. So the base's spread and what the bare
+ * beds leave out are kept in proportion.
  */
 export function trial(planner: Planner, base: TrialBase, legs: readonly Leg[]): Trial {
   const { outlook, beyond_s } = planner;
@@ -41,25 +41,40 @@ export function trial(planner: Planner, base: TrialBase, legs: readonly Leg[]): 
 }
 
 function breaks(planner: Planner, base: TrialBase, episode: Episode): Float64Array {
-  const { first_s: now_s, from_s } = episode;
-  const never = new Float64Array(NORMAL_COUNT).fill(Number.POSITIVE_INFINITY);
-  if (!Number.isFinite(now_s)) return never;
+  const first = new Float64Array(NORMAL_COUNT).fill(Number.POSITIVE_INFINITY);
   const e = likeOf(base, episode);
+  episode.times_s.forEach((now_s, rule) => {
+    if (!Number.isFinite(now_s)) return;
+    const values = timesOf(planner, base, episode, e, rule);
+    values.forEach((value, k) => {
+      if (value < (first[k] as number)) first[k] = value;
+    });
+  });
+  return first;
+}
+
+/** Times of one rule in a run [s], by those in the base's run `e`. */
+function timesOf(
+  planner: Planner,
+  base: TrialBase,
+  { times_s, from_s }: Episode,
+  e: number,
+  rule: number,
+): Float64Array {
+  const lasts_s = (times_s[rule] as number) - from_s;
   const was = base.coarse.episodes[e];
-  const spread = base.evaluation.first_s[e];
-  const length_s = (was?.first_s ?? Number.NaN) - (was?.from_s ?? 0);
-  if (
-    was === undefined ||
-    spread === undefined ||
-    !(length_s > SHORTEST_S && length_s < Infinity)
-  ) {
+  const known = base.evaluation.samples.find((one) => one.e === e && one.rule === rule);
+  const lasted_s = was === undefined ? 0 : (was.times_s[rule] as number) - was.from_s;
+  if (was === undefined || known === undefined || !isLong(lasted_s)) {
     const sigma = relativeSigma(planner, base);
     const [normals] = latinNormals(1);
-    return (normals as Float64Array).map((z) => from_s + (now_s - from_s) * (1 + sigma * z));
+    return (normals as Float64Array).map((z) => from_s + lasts_s * (1 + sigma * z));
   }
-  const ratio = (now_s - from_s) / length_s;
-  return spread.map((value) => from_s + (value - was.from_s) * ratio);
+  const ratio = lasts_s / lasted_s;
+  return known.values.map((value) => from_s + (value - was.from_s) * ratio);
 }
+
+const isLong = (run_s: number): boolean => run_s > SHORTEST_S && Number.isFinite(run_s);
 
 /** Index of the base's run that has most time in common; -1 = none. */
 function likeOf({ evaluation }: TrialBase, episode: Episode): number {
@@ -74,19 +89,17 @@ function likeOf({ evaluation }: TrialBase, episode: Episode): number {
   return best;
 }
 
-/** Of a run whose like never broke: the greatest of the others, or what meter and machine leave. */
+/** Of a rule that the base never reached: the greatest of the others, or what meter and machine leave. */
 function relativeSigma({ outlook }: Planner, { evaluation }: TrialBase): number {
   const least = Math.hypot(
     MODEL_SIGMA,
     ...outlook.calibration.covariance.map((row, i) => Math.sqrt(row[i] as number)),
   );
-  const others = evaluation.course.episodes.map((episode, e) => {
-    const values = evaluation.first_s[e] as Float64Array;
-    if (!values.every(Number.isFinite)) return 0;
+  const others = evaluation.samples.map(({ e, values }) => {
     const mean = values.reduce((sum, v) => sum + v, 0) / values.length;
     const variance = values.reduce((sum, v) => sum + (v - mean) ** 2, 0) / values.length;
-    const length = mean - episode.from_s;
-    return length > SHORTEST_S ? Math.sqrt(variance) / length : 0;
+    const length_s = mean - (evaluation.course.episodes[e]?.from_s as number);
+    return isLong(length_s) ? Math.sqrt(variance) / length_s : 0;
   });
   return Math.max(least, ...others);
 }
