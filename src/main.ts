@@ -1,4 +1,6 @@
 import { Command, CommanderError } from 'commander';
+import { register as registerBalance } from './commands/balance.js';
+import { register as registerCapability } from './commands/capability.js';
 import { register as registerCheck } from './commands/check.js';
 import { register as registerDemo } from './commands/demo.js';
 import { register as registerHeadroom } from './commands/headroom.js';
@@ -17,6 +19,8 @@ const COMMANDS = [
   registerReplay,
   registerHours,
   registerHeadroom,
+  registerCapability,
+  registerBalance,
   registerTune,
   registerSensors,
   registerCheck,

@@ -1,5 +1,4 @@
 import type { StoreKind } from '../definitions.js';
-import type { Quantiles } from '../estimate.js';
 import { type HoursAlone, hoursOfEach, mismatchOf, WITHOUT } from './alone.js';
 import { contentOf } from './content.js';
 import { withoutRules } from './limitToLimit.js';
@@ -19,7 +18,7 @@ export interface Stranded {
 
 export interface Drift {
   /** Mismatch after the usual charge of each of two equal cycles [h]. */
-  readonly after_charge_h: readonly number[];
+  readonly after_charge_h: number[];
   readonly per_cycle_h: number;
   /** Of what is stranded at the end of each cycle's discharge. */
   readonly per_cycle_MWh_th: number;
@@ -29,7 +28,7 @@ export interface Mismatch {
   readonly power_MW_el: number;
   readonly together: HoursAlone;
   /** Each store where the other's rule is left out, by store. */
-  readonly alone: Record<string, { readonly hours: Quantiles; readonly ends_by: string }>;
+  readonly alone: Record<string, HoursAlone>;
   /** Hot less cold, by the best march: above 0 the hot store holds more. */
   readonly mismatch_h: number;
   /** The store that ends a discharge; null: they match to a minute. */

@@ -2,9 +2,14 @@ import { askPlan } from '../planHead.js';
 import { faults, type Routes, unitOf } from '../routes.js';
 import { headroomQuery, headroomSchema } from '../schema/plan.js';
 import { unitParams } from '../schema/questions.js';
+import { balanceRoutes } from './balance.js';
+import { capabilityRoutes } from './capability.js';
 
-/** GET /api/units/{unit}/headroom */
-export const planRoutes: Routes = (app, { service, tuning }) => {
+/** GET /api/units/{unit}/headroom, and with it capability and balance. */
+export const planRoutes: Routes = (app, context) => {
+  capabilityRoutes(app, context);
+  balanceRoutes(app, context);
+  const { service, tuning } = context;
   const tags = ['ahead'];
   const config = { rateLimit: { max: tuning.hours_per_min, timeWindow: 60_000 } };
 

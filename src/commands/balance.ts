@@ -1,0 +1,87 @@
+import type { Command } from 'commander';
+import type { Balance, BalanceAsk } from '../core/plan/balance.js';
+import { RockhourError } from '../errors.js';
+import {
+  type AheadHead,
+  type AheadOptions,
+  answerRecorded,
+  askAhead,
+  checkAheadOptions,
+  stateFromRecording,
+} from './aheadState.js';
+import { balanceText } from './balance/text.js';
+
+interface BalanceOptions extends AheadOptions {
+  readonly power?: string;
+  readonly charge?: string;
+  readonly price?: string;
+  readonly chargingPrice?: string;
+}
+
+/** A number of the command line, undefined where it is not given. */
+function numeral(option: string, text: string | undefined, least: 'above 0' | '0 or more') {
+  if (text === undefined) return undefined;
+  const value = text.trim() === '' ? Number.NaN : Number(text);
+  if (Number.isFinite(value) && (least === 'above 0' ? value > 0 : value >= 0)) return value;
+  throw new RockhourError(
+    'USAGE',
+    `${option} is ${JSON.stringify(text)}; expected a number, ${least}`,
+  );
+}
+
+async function answerOf(options: BalanceOptions): Promise<AheadHead & Balance> {
+  const power_MW = numeral('--power', options.power, 'above 0');
+  const charge_MWh_el = numeral('--charge', options.charge, 'above 0');
+  const price = numeral('--price', options.price, '0 or more');
+  const charging = numeral('--charging-price', options.chargingPrice, '0 or more');
+  if (charging !== undefined && price === undefined) {
+    throw new RockhourError('USAGE', '--charging-price goes with --price, of energy given');
+  }
+  if (options.url !== undefined) {
+    const query = {
+      power_MW: power_MW?.toString(),
+      charge_MWh_el: charge_MWh_el?.toString(),
+      price_per_MWh_el: price?.toString(),
+      charging_price_per_MWh_el: charging?.toString(),
+    };
+    return (await askAhead(options, 'balance', query)) as AheadHead & Balance;
+  }
+  const recorded = await stateFromRecording(options);
+  const ask: BalanceAsk = {
+    ...(power_MW === undefined ? {} : { power_W: power_MW * 1e6 }),
+    ...(charge_MWh_el === undefined ? {} : { charge_J: charge_MWh_el * 3.6e9 }),
+    ...(price === undefined
+      ? {}
+      : {
+          prices: {
+            price_per_MWh_el: price,
+            ...(charging === undefined ? {} : { charging_price_per_MWh_el: charging }),
+          },
+        }),
+  };
+  return { ...recorded.head, ...answerRecorded(recorded, { kind: 'balance', ask }) };
+}
+
+async function balance(options: BalanceOptions): Promise<void> {
+  checkAheadOptions('balance', options);
+  const answer = await answerOf(options);
+  process.stdout.write(`${options.json ? JSON.stringify(answer) : balanceText(answer)}\n`);
+}
+
+export function register(program: Command): void {
+  program
+    .command('balance')
+    .description('what flushing the fronts would win back, and how the two stores match')
+    .option('--config <file>', 'configuration of the site (YAML); with --recording')
+    .option('--recording <file>', 'recording after whose last row, or at --at, it is asked')
+    .option('--at <time>', 'take rows up to this time (ISO 8601 with offset, or seconds)')
+    .option('--url <address>', 'ask a running daemon instead, such as http://127.0.0.1:8080')
+    .option('--unit <id>', 'unit asked for; needed where there are several')
+    .option('--stale <what>', 'where the estimate of a daemon is stale: refuse (default) or mark')
+    .option('--power <MW>', 'power of the discharge (default: rated)')
+    .option('--charge <MWh>', 'MWh_el that a usual charge takes (default: for the rated energy)')
+    .option('--price <number>', 'price of energy given per MWh_el; without it MWh_el alone')
+    .option('--charging-price <number>', 'price of energy taken per MWh_el (default: the same)')
+    .option('--json', 'answer as one line of JSON')
+    .action(balance);
+}
