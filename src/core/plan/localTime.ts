@@ -1,5 +1,4 @@
-import { DateTime } from 'luxon';
-import { isTimeZone as isKnown } from './ceilings.js';
+import { DateTime, IANAZone } from 'luxon';
 
 /** Between two instants [ms since 1970-01-01T00:00:00Z]. */
 export interface Span {
@@ -23,7 +22,7 @@ const asked = new Map<string, boolean>();
 
 /** Whether this is a name of the IANA time zone database, such as Europe/Paris or Etc/UTC. */
 export function isTimeZone(zone: string): boolean {
-  const known = asked.get(zone) ?? isKnown(zone);
+  const known = asked.get(zone) ?? IANAZone.isValidZone(zone);
   // Names come from outside: not without end.
   if (asked.size < 1000) asked.set(zone, known);
   return known;
