@@ -4,22 +4,27 @@ import { fileURLToPath } from 'node:url';
 import { FolderLock } from './adapters/history/folderLock.js';
 import { History } from './adapters/history/history.js';
 import { Journal } from './adapters/history/journal.js';
+import { headOf } from './adapters/http/planHead.js';
 import { createHttpServer } from './adapters/http/server.js';
 import type { HealthPart, PlantService } from './adapters/http/service.js';
 import { Intake } from './adapters/mqtt/intake.js';
 import type { SiteConfig } from './config/site.js';
+import type { UnitDefinition } from './core/definitions.js';
+import type { DispatchAnswer } from './core/estimate.js';
+import { limitedAnswers } from './core/plan/limitedBy.js';
 import type { WatchEvent } from './core/watch/event.js';
 import { type DaemonClock, SteadyClock, wallClock } from './daemon/clock.js';
 import { type Core, realCore } from './daemon/core.js';
 import { Counters } from './daemon/counters.js';
 import { DatabasePart } from './daemon/databasePart.js';
+import { HeadroomOnHours } from './daemon/headroomOnHours.js';
 import { brokerHealth, storeHealth, unitHealth } from './daemon/health.js';
 import { HoursOnChange } from './daemon/hoursOnChange.js';
 import { Housekeeping } from './daemon/housekeeping.js';
 import { MqttPart } from './daemon/mqttPart.js';
 import { Notices } from './daemon/notices.js';
 import { Pipeline } from './daemon/pipeline.js';
-import { DaemonService } from './daemon/plantService.js';
+import { DaemonService, type KeptTable } from './daemon/plantService.js';
 import { Questions } from './daemon/questions.js';
 import { type RunnerStep, UnitRunner } from './daemon/unitRunner.js';
 import type { Log } from './log.js';
@@ -91,6 +96,7 @@ class RockhourDaemon implements Daemon {
   private readonly database: DatabasePart | null;
   private readonly housekeeping: Housekeeping;
   private readonly hoursOnChange: HoursOnChange;
+  private readonly headroomOnHours: HeadroomOnHours;
   /** What has been started, to be ended in reverse order. */
   private readonly ending: (() => void | Promise<void>)[] = [];
   private places: Promise<DaemonPlaces> | null = null;
@@ -159,13 +165,21 @@ class RockhourDaemon implements Daemon {
     this.hoursOnChange = new HoursOnChange({
       ...{ questions: this.questions, history, notices },
       answered: (runner, dispatch) => {
-        this.mqtt.announcer.dispatch(runner.unit.id, dispatch.time, dispatch.answers);
+        this.sayHours(runner.unit, dispatch.time, dispatch.answers);
         this.service.tell({ kind: 'state', unit: runner.unit.id });
+      },
+    });
+    this.headroomOnHours = new HeadroomOnHours({
+      ...{ questions: this.questions, notices },
+      answered: ({ unit, view }, { time, answers }) => {
+        const head = headOf(unit, time, view.estimate?.quality ?? 'blind');
+        this.mqtt.announcer.headroom({ ...head, answers });
       },
     });
     this.service = new DaemonService({
       ...{ siteName: site.name, version, runners: this.runners, history, counters, clock },
       questions: this.questions,
+      kept: (unit, table) => this.sayOffers(unit, table),
       health: () => this.health(),
       acknowledged: (unit) => this.tellStanding(unit, null),
     });
@@ -279,9 +293,11 @@ class RockhourDaemon implements Daemon {
   /** What was last said before this start is said again. */
   private restate(): void {
     const { announcer } = this.mqtt;
-    for (const [id, { view }] of this.runners) {
+    for (const [id, { unit, view }] of this.runners) {
       if (view.estimate) announcer.state(view.estimate);
-      if (view.dispatch) announcer.dispatch(id, view.dispatch.time, view.dispatch.answers);
+      if (view.dispatch) this.sayHours(unit, view.dispatch.time, view.dispatch.answers);
+      const table = this.service.newestKept(id);
+      if (table) this.sayOffers(id, table);
       this.tellStanding(id, null);
     }
   }
@@ -291,8 +307,19 @@ class RockhourDaemon implements Daemon {
     const { announcer } = this.mqtt;
     announcer.state(estimate);
     this.hoursOnChange.stepped(runner, estimate, this.pipeline.backlog);
-    if (estimate.dispatch) announcer.dispatch(estimate.unit, estimate.time, estimate.dispatch);
+    this.headroomOnHours.stepped(runner, estimate, this.pipeline.backlog);
+    if (estimate.dispatch) this.sayHours(runner.unit, estimate.time, estimate.dispatch);
     this.service.tell({ kind: 'state', unit: runner.unit.id });
+  }
+
+  /** Hours with what limits them: the machine, the connection, an outage. */
+  private sayHours(unit: UnitDefinition, time: string, answers: readonly DispatchAnswer[]): void {
+    this.mqtt.announcer.dispatch(unit.id, time, limitedAnswers(unit, time, answers));
+  }
+
+  private sayOffers(unit: string, { no, asked_ms, answer }: KeptTable): void {
+    const asked = new Date(asked_ms).toISOString();
+    this.mqtt.announcer.offers({ ...answer, unit, no, asked });
   }
 
   private tellEvent(event: WatchEvent): void {

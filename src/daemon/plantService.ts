@@ -21,6 +21,13 @@ import { reportOffers } from './offerReports.js';
 import type { Questions } from './questions.js';
 import type { UnitRunner } from './unitRunner.js';
 
+/** An offer table as it was answered and kept. */
+export interface KeptTable {
+  readonly no: number;
+  readonly asked_ms: number;
+  readonly answer: AnsweredOffers;
+}
+
 export interface PlantServiceParts {
   readonly siteName: string;
   readonly version: string;
@@ -30,6 +37,8 @@ export interface PlantServiceParts {
   readonly counters: Counters;
   readonly clock: DaemonClock;
   health(): HealthPart[];
+  /** An offer table has been kept. */
+  kept(unit: string, table: KeptTable): void;
   /** What stands has changed by an acknowledgement. */
   acknowledged(unit: string): void;
 }
@@ -91,11 +100,20 @@ export class DaemonService implements PlantService {
     const { unit } = this.runner(id);
     const no = this.parts.history.offers.add(unit.id, asked_ms, time_ms, asked, answer);
     this.parts.counters.add('offers_kept');
+    this.parts.kept(unit.id, { no, asked_ms, answer });
     return no;
   }
 
   keptOffers(id: string, from_ms: number, to_ms: number, most: number): KeptOffers[] {
     return this.parts.history.offers.between(this.runner(id).unit.id, from_ms, to_ms, most);
+  }
+
+  /** The table kept last; null where none has been. */
+  newestKept(id: string): KeptTable | null {
+    const [newest] = this.keptOffers(id, 0, Number.MAX_SAFE_INTEGER, 1);
+    const answer = newest === undefined ? null : this.answeredOffers(id, newest.no);
+    if (newest === undefined || answer === null) return null;
+    return { no: newest.no, asked_ms: newest.asked_ms, answer };
   }
 
   answeredOffers(id: string, no: number): AnsweredOffers | null {

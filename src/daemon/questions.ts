@@ -29,6 +29,11 @@ export class Questions {
     this.slow = configPath === null ? null : new WorkerLine(configPath);
   }
 
+  /** false: questions are answered in this thread. */
+  get hasWorker(): boolean {
+    return this.quick !== null;
+  }
+
   async hours(
     unit: UnitDefinition,
     snapshot: UnitSnapshot,

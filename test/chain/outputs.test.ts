@@ -2,8 +2,10 @@ import { readFileSync } from 'node:fs';
 import { connectAsync } from 'mqtt';
 import { afterAll, beforeAll, describe, expect, it } from 'vitest';
 import { z } from 'zod';
+import { headroomSchema } from '../../src/adapters/http/schema/plan.js';
 import { ReadingPublisher } from '../../src/adapters/mqtt/readingPublisher.js';
 import { loadSite } from '../../src/config/load.js';
+import { COMMAND_CAUSES } from '../../src/core/plan/leg.js';
 import { createDemoPlant } from '../../src/plant/demoPlant.js';
 import { RockhourProcess } from '../daemon/processes.js';
 import { siteFile } from '../daemon/siteFile.js';
@@ -21,6 +23,12 @@ const mosquitto = requireProgram('mosquitto');
 const SCANS = 40;
 const CUT = 'hot_axis_03';
 const ALERT = `vellmoor/sensor_rejected/${CUT}`;
+
+const HEADROOM = 'rockhour/vellmoor/headroom';
+/** An answer of hours as the contract has it, and what limits its power. */
+const limitedAnswer = contractLine.shape.dispatch
+  .unwrap()
+  .element.extend({ limited_by: z.enum(COMMAND_CAUSES).nullable() });
 
 interface Heard {
   readonly content: Record<string, unknown>;
@@ -99,27 +107,44 @@ describe.skipIf(!mosquitto)('a running daemon', () => {
     return { status: answer.status, type, body };
   }
 
-  it('has said state, hours, alarms and heartbeat, retained, for whoever comes later', async () => {
+  it('has said state, hours, headroom, alarms and heartbeat, retained, for whoever comes later', async () => {
     const { first, heard, end } = await listen(broker.url);
     const topics = ['rockhour/heartbeat', 'rockhour/vellmoor/alarms'];
-    topics.push('rockhour/vellmoor/dispatch', 'rockhour/vellmoor/state');
-    await waitFor('all topics', () => topics.every((topic) => heard.has(topic)));
+    topics.push('rockhour/vellmoor/dispatch', 'rockhour/vellmoor/headroom');
+    topics.push('rockhour/vellmoor/state');
+    // What it can still take comes from the worker, some seconds after the first full hours.
+    await waitFor('all topics', () => topics.every((topic) => heard.has(topic)), 20_000);
     expect([...heard.keys()].sort()).toEqual(topics);
     const of = (topic: string) => heard.get(topic)!.content;
-    for (const topic of topics) expect(first.get(topic)!.retain, topic).toBe(true);
+    // Headroom may come while this listens.
+    for (const topic of topics.filter((one) => one !== HEADROOM)) {
+      expect(first.get(topic)!.retain, topic).toBe(true);
+    }
     // The state is a line of the replay without its events; a scan may close between the two looks.
     const { state, now } = await waitFor('topic and page of one scan', async () => {
       const now = (await get('/api/units/vellmoor')).body;
-      const state = contractLine.omit({ events: true }).strict().parse(of(topics[3]!));
+      const state = contractLine.omit({ events: true }).strict().parse(of(topics[4]!));
       return state.time === now.estimate.time && { state, now };
     });
     expect(state.unit).toBe('vellmoor');
     expect(state.state_of_charge).toBe(now.estimate.state_of_charge);
     const dispatch = z
-      .strictObject({ time: z.string(), unit: z.string(), answers: contractLine.shape.dispatch })
+      .strictObject({ time: z.string(), unit: z.string(), answers: z.array(limitedAnswer) })
       .parse(of(topics[2]!));
-    expect(dispatch.answers!.map(({ power_MW }) => power_MW)).toEqual([1.8, 1.2]);
+    expect(dispatch.answers.map(({ power_MW }) => power_MW)).toEqual([1.8, 1.2]);
     expect(dispatch.answers).toEqual(now.dispatch.answers);
+    // 3.6 MW is the greatest charging power of the configuration, 1.8 MW the rated one.
+    const headroom = of(HEADROOM) as z.output<typeof headroomSchema>;
+    const { age_s: _age, stale: _stale, ...told } = headroomSchema.shape;
+    expect(z.strictObject(told).safeParse(headroom).error?.issues ?? []).toEqual([]);
+    expect(headroom.answers.map(({ power_MW_el }) => power_MW_el)).toEqual([3.6, 1.8]);
+    for (const { hours, energy_MWh_el, power_MW_el, refused } of headroom.answers) {
+      expect(refused).toBeNull();
+      expect(hours.p90).toBeLessThanOrEqual(hours.p10);
+      // Start-up and ramp are in the energy, not in full power: never more than power times hours.
+      expect(energy_MWh_el.p50).toBeLessThanOrEqual(power_MW_el * hours.p50 + 0.05);
+    }
+    expect(headroom.limits).toEqual(now.definition.limits);
     const alarms = of(topics[1]!) as { standing: { id: string }[] };
     expect(Object.keys(alarms).sort()).toEqual(['last', 'standing', 'time', 'unit']);
     expect(alarms.standing.map(({ id }) => id)).toContain(ALERT);
@@ -137,6 +162,20 @@ describe.skipIf(!mosquitto)('a running daemon', () => {
     await waitFor('the next beat', () => !heard.get(topics[0]!)!.retain, 15_000);
     const next = of(topics[0]!) as { uptime_s: number };
     expect(next.uptime_s).toBeGreaterThan(beat.uptime_s);
+    await end();
+  }, 30_000);
+
+  it('says the offer table that was kept last, as it was answered', async () => {
+    const { heard, end } = await listen(broker.url);
+    const topic = 'rockhour/vellmoor/offers';
+    const path = '/api/units/vellmoor/offers?power_MW=1&horizon_h=1&block_min=60';
+    expect((await get(path)).body.kept).toBeNull();
+    const { kept, ...table } = (await get(`${path}&keep=true`)).body;
+    await waitFor('the topic', () => heard.has(topic));
+    const { no, asked, ...said } = heard.get(topic)!.content;
+    expect(no).toBe(kept);
+    expect(Math.abs(Date.parse(asked as string) - Date.now())).toBeLessThan(60_000);
+    expect(said).toEqual(table);
     await end();
   }, 30_000);
 

@@ -1,4 +1,5 @@
-import type { Estimate } from '../../core/estimate.js';
+import type { UnitDefinition } from '../../core/definitions.js';
+import type { Estimate, Quality } from '../../core/estimate.js';
 import type { PlanAnswers, PlanQuestion } from '../../core/plan/ask.js';
 import { HttpFault } from './faults.js';
 import { limitsView } from './limitsView.js';
@@ -34,6 +35,18 @@ export function requireEstimate(now: UnitNow, stale: 'refuse' | 'mark' | undefin
   return now.estimate;
 }
 
+/** Head of an answer about what lies ahead, but for what changes while it is kept. */
+export function headOf(unit: UnitDefinition, time: string, quality: Quality) {
+  return {
+    unit: unit.id,
+    time,
+    valid_until: new Date(Date.parse(time) + unit.hours_every_s * 1000).toISOString(),
+    quality,
+    given: GIVEN,
+    limits: limitsView(unit, Date.parse(time)),
+  };
+}
+
 /**
  * Asks about what lies ahead of a unit's present state, with the head that every such answer has.
  *
@@ -61,14 +74,9 @@ export async function askPlan<K extends PlanQuestion['kind']>(
   const after = service.now(unit) ?? now;
   return {
     head: {
-      unit,
-      time,
       age_s: ageOf(after, time),
-      valid_until: new Date(Date.parse(time) + now.unit.hours_every_s * 1000).toISOString(),
       stale: after.stale,
-      quality: estimate.quality,
-      given: GIVEN,
-      limits: limitsView(now.unit, Date.parse(time)),
+      ...headOf(now.unit, time, estimate.quality),
     },
     answer: found.answer as PlanAnswers[K],
   };

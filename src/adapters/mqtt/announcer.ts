@@ -1,4 +1,6 @@
-import type { DispatchAnswer, Estimate } from '../../core/estimate.js';
+import type { Estimate } from '../../core/estimate.js';
+import type { Headroom } from '../../core/plan/headroom.js';
+import type { LimitedAnswer } from '../../core/plan/limitedBy.js';
 import type { WatchEvent } from '../../core/watch/event.js';
 
 /** As much of the link as announcing needs. */
@@ -13,6 +15,26 @@ export interface AlarmsMessage {
   readonly unit: string;
   readonly standing: readonly object[];
   readonly last: WatchEvent | null;
+}
+
+/** What a unit can still take, with the head that every answer about what lies ahead has. */
+export interface HeadroomMessage {
+  readonly time: string;
+  readonly unit: string;
+  readonly valid_until: string;
+  readonly quality: Estimate['quality'];
+  readonly given: string;
+  readonly limits: object;
+  readonly answers: readonly Headroom[];
+}
+
+/** A kept offer table as it was answered over HTTP. */
+export interface OffersMessage {
+  readonly unit: string;
+  /** The number under which it is kept, and when it was asked for. */
+  readonly no: number;
+  readonly asked: string;
+  readonly [key: string]: unknown;
 }
 
 export interface AnnouncerOptions {
@@ -31,6 +53,8 @@ export const HEARTBEAT_MS = 10_000;
  *
  * - `PREFIX/UNIT/state`     the estimate of the last scan
  * - `PREFIX/UNIT/dispatch`  `{"time", "unit", "answers": [...]}`: the hours computed last
+ * - `PREFIX/UNIT/headroom`  what the unit can still take at configured charging powers, see HeadroomMessage
+ * - `PREFIX/UNIT/offers`    the offer table kept last, as HTTP answered it, with `no` and `asked`
  * - `PREFIX/UNIT/alarms`    `{"time", "unit", "standing": [...], "last": event or null}`
  * - `PREFIX/heartbeat`      `{"status": "online", "time", "site", "version", "uptime_s"}` every 10 s,
  *                           and `{"status": "offline"}` by the broker's last will or a clean stop
@@ -76,8 +100,16 @@ export class Announcer {
     this.say(`${estimate.unit}/state`, estimate);
   }
 
-  dispatch(unit: string, time: string, answers: readonly DispatchAnswer[]): void {
+  dispatch(unit: string, time: string, answers: readonly LimitedAnswer[]): void {
     this.say(`${unit}/dispatch`, { time, unit, answers });
+  }
+
+  headroom(message: HeadroomMessage): void {
+    this.say(`${message.unit}/headroom`, message);
+  }
+
+  offers(message: OffersMessage): void {
+    this.say(`${message.unit}/offers`, message);
   }
 
   alarms(message: AlarmsMessage): void {
