@@ -3,7 +3,7 @@
  * at random, one cycle behind it, 40, 70 or 100 % power after 0, 4 or 12 h. Resumable: truths and
  * results are kept in .score/offers.
  *
- *   npm run score:offers -- [--cases 216] [--from 20000] [--workers 2]
+ *   npm run score:offers -- [--cases 216] [--from 20000] [--workers 2] [--truths-only]
  *
  * `--from` is the first seed; those from 20000 on are kept for judging, never looked at while
  * building (1, 2, ... are for that). Zero-hour cases do not count as hits.
@@ -16,7 +16,7 @@ import { fileURLToPath } from 'node:url';
 import { parseArgs } from 'node:util';
 import { table } from '../src/commands/table.js';
 import { type OfferHashes, type OfferResult, offerResults, SETS } from './offers/offerEstimate.js';
-import { PREPARATIONS, SHARES, WAITS_H } from './offers/offerTruth.js';
+import { offerTruth, PREPARATIONS, SHARES, WAITS_H } from './offers/offerTruth.js';
 import { codeHash } from './score/codeHash.js';
 import { root } from './score/folder.js';
 import { unitWith } from './score/sensorSets.js';
@@ -29,6 +29,7 @@ const { values } = parseArgs({
     workers: { type: 'string', default: '2' },
     seeds: { type: 'string' },
     hashes: { type: 'string' },
+    'truths-only': { type: 'boolean', default: false },
     help: { type: 'boolean', default: false },
   },
 });
@@ -48,7 +49,10 @@ function whole(name: 'cases' | 'from' | 'workers'): number {
 
 if (values.seeds !== undefined) {
   const hashes = JSON.parse(values.hashes as string) as OfferHashes;
-  for (const seed of values.seeds.split(',').map(Number)) offerResults(seed, hashes);
+  for (const seed of values.seeds.split(',').map(Number)) {
+    if (values['truths-only']) offerTruth(seed, hashes.truth);
+    else offerResults(seed, hashes);
+  }
 } else {
   const hashes = await hashesNow();
   const from = whole('from');
@@ -63,8 +67,9 @@ if (values.seeds !== undefined) {
       ),
     ),
   );
-  const all = seeds.flatMap((seed) => offerResults(seed, hashes));
   console.log(`${seeds.length} cases in ${((performance.now() - started) / 1000).toFixed(0)} s`);
+  if (values['truths-only']) process.exit(0);
+  const all = seeds.flatMap((seed) => offerResults(seed, hashes));
   for (const set of SETS) report(all.filter((one) => one.set === set));
 }
 
@@ -80,6 +85,7 @@ function run(seeds: readonly number[], hashes: OfferHashes): Promise<void> {
   if (seeds.length === 0) return Promise.resolve();
   return new Promise((done, fail) => {
     const own = ['--seeds', seeds.join(','), '--hashes', JSON.stringify(hashes)];
+    if (values['truths-only']) own.push('--truths-only');
     const child = fork(fileURLToPath(import.meta.url), own, { execArgv: process.execArgv });
     child.once('exit', (code) =>
       code === 0 ? done() : fail(new Error(`a worker ended with ${code}`)),
