@@ -170,7 +170,7 @@ function stand(usual: Usual, before: number): Trim {
  * of m dt (h(T_out) - h(T_d)), m the metered flow times the store's travel factor and the rock's heat
  * capacity as it was found, so that it is on the same scale as what the store holds.
  */
-function blownThrough(usual: Usual, s: number, moments: readonly Moment[]): number {
+export function blownThrough(usual: Usual, s: number, moments: readonly Moment[]): number {
   const { model, capacity } = usual;
   const own = model.stores[s] as AheadModel['stores'][number];
   const { kind, reference_cold_K, reference_hot_K, bed } = own.store;
