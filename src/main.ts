@@ -6,6 +6,7 @@ import { register as registerDemo } from './commands/demo.js';
 import { register as registerHeadroom } from './commands/headroom.js';
 import { closingHelp } from './commands/help.js';
 import { register as registerHours } from './commands/hours.js';
+import { register as registerOffers } from './commands/offers.js';
 import { register as registerReplay } from './commands/replay.js';
 import { packageVersion, register as registerRun } from './commands/run.js';
 import { register as registerSensors } from './commands/sensors.js';
@@ -19,6 +20,7 @@ const COMMANDS = [
   registerReplay,
   registerHours,
   registerHeadroom,
+  registerOffers,
   registerCapability,
   registerBalance,
   registerTune,

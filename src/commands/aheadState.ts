@@ -138,20 +138,24 @@ export function answerRecorded<K extends PlanQuestion['kind']>(
 /**
  * Asks a daemon for `/api/units/UNIT/<path>`.
  * @param query without `stale`, which comes from the options
+ * @param body what is posted, `stale` in it; without it the question is a GET
  */
 export async function askAhead(
   options: AheadOptions,
   path: string,
   query: Readonly<Record<string, string | undefined>>,
+  body?: object,
 ): Promise<AheadHead> {
   const url = options.url as string;
   const unit = options.unit ?? (await onlyUnitOf(url));
   const search = new URLSearchParams();
-  for (const [key, value] of Object.entries({ ...query, stale: options.stale })) {
+  const stale = body === undefined ? options.stale : undefined;
+  for (const [key, value] of Object.entries({ ...query, stale })) {
     if (value !== undefined) search.set(key, value);
   }
   const asked = search.size === 0 ? path : `${path}?${search}`;
-  return (await askDaemon(url, `/api/units/${encodeURIComponent(unit)}/${asked}`)) as AheadHead;
+  const address = `/api/units/${encodeURIComponent(unit)}/${asked}`;
+  return (await askDaemon(url, address, body)) as AheadHead;
 }
 
 /** First line of every table for people. */

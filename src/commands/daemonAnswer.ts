@@ -18,9 +18,10 @@ function complaint(body: string): string {
  * Asks a running daemon's HTTP API.
  * @param base address of the daemon with its path prefix, such as http://127.0.0.1:8080
  * @param path path below it with its query
+ * @param body what is posted as JSON; without it the question is a GET
  * @throws RockhourError DAEMON_UNREACHABLE, DAEMON_REFUSED, or USAGE for an address that is none
  */
-export async function askDaemon(base: string, path: string): Promise<unknown> {
+export async function askDaemon(base: string, path: string, body?: object): Promise<unknown> {
   if (!URL.canParse(base) || !/^https?:$/.test(new URL(base).protocol)) {
     throw new RockhourError(
       'USAGE',
@@ -28,36 +29,39 @@ export async function askDaemon(base: string, path: string): Promise<unknown> {
     );
   }
   const address = base.replace(/\/+$/, '') + path;
+  const question = `${body === undefined ? 'GET' : 'POST'} ${address}`;
   let status: number;
-  let body: string;
+  let text: string;
   try {
     const response = await fetch(address, {
-      headers: { accept: 'application/json' },
+      ...(body === undefined ? {} : { method: 'POST', body: JSON.stringify(body) }),
+      headers: {
+        accept: 'application/json',
+        ...(body === undefined ? {} : { 'content-type': 'application/json' }),
+      },
       signal: AbortSignal.timeout(PATIENCE_MS),
     });
     status = response.status;
-    body = await response.text();
+    text = await response.text();
   } catch (error) {
     // fetch wraps what the network said.
     const inner = error instanceof Error && error.cause !== undefined ? error.cause : error;
-    throw new RockhourError(
-      'DAEMON_UNREACHABLE',
-      `GET ${address} got no answer: ${reasonOf(inner)}`,
-      { cause: error },
-    );
+    throw new RockhourError('DAEMON_UNREACHABLE', `${question} got no answer: ${reasonOf(inner)}`, {
+      cause: error,
+    });
   }
   if (status !== 200) {
     throw new RockhourError(
       'DAEMON_REFUSED',
-      `GET ${address} was answered with ${status}: ${complaint(body)}`,
+      `${question} was answered with ${status}: ${complaint(text)}`,
     );
   }
   try {
-    return JSON.parse(body);
+    return JSON.parse(text);
   } catch (error) {
     throw new RockhourError(
       'DAEMON_REFUSED',
-      `GET ${address} was not answered in JSON but with ${JSON.stringify(body.slice(0, 80))}`,
+      `${question} was not answered in JSON but with ${JSON.stringify(text.slice(0, 80))}`,
       { cause: error, advice: 'Check that the address is that of a rockhour daemon.' },
     );
   }

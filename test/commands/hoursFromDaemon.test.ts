@@ -110,6 +110,24 @@ describe('rockhour hours of a running daemon', () => {
     expect(wrong.code).toBe(2);
   });
 
+  it('gives an offer table with its blocks, keeps it, and reports on what it kept', async () => {
+    const gate = ['--closes-before', '60min', '--every', '4h', '--count', '2'];
+    const ask = ['--url', url, '--power', '0.8,9', ...gate, '--certainty', '0.5,0.9'];
+    const { stdout, code } = await rockhour(['offers', ...ask, '--blocks', '--keep']);
+    expect(code).toBe(0);
+    expect(stdout).toMatch(/^vellmoor: estimate of .* quality /);
+    expect(stdout).toMatch(/^\d{4}-\S+:[0-9]{2}\+0\d:00 +0\.8 .* cold_outlet \d+ %/m);
+    expect(stdout).toContain('above_greatest_power: the unit discharges at 0.400 to 2.000 MW_el');
+    expect(stdout).toMatch(/^from +MWh_el 50 % +MWh_el 90 % +mean MWh_el +whole alone/m);
+    expect(stdout).toContain('Kept as number 1.');
+    const [kept] = (await api('/api/units/vellmoor/offers/history')).tables;
+    expect(kept).toMatchObject({ no: 1, block_s: 900 });
+    expect(kept.offers).toHaveLength(4);
+    const report = await rockhour(['offers', '--url', url, '--report']);
+    expect(report.stdout).toContain('No offer was put to the test.');
+    expect(report.stdout).toContain('Not put to the test: 2 refused, 2 not_yet.');
+  });
+
   it('passes on what the daemon says of a unit that it does not have', async () => {
     const { stderr, code } = await rockhour(['hours', '--url', url, '--unit', 'x', '--power', '1']);
     expect(stderr).toContain('there is no unit "x"; one of vellmoor');

@@ -1,14 +1,12 @@
 import type { z } from 'zod';
 import type { UnitDefinition } from '../../core/definitions.js';
-import { instantOf } from '../../core/plan/localTime.js';
-import { type OffersAsk, requireOffers, WrongQuestion } from '../../core/plan/offerAsk.js';
+import { type OffersAsk, WrongQuestion } from '../../core/plan/offerAsk.js';
+import { offersAskOf, USUAL_CERTAINTIES } from '../../core/plan/offerWords.js';
 import { wrongValue } from './faults.js';
 import type { offersBody, offersQuery } from './schema/offers.js';
 
 type Body = z.output<typeof offersBody>;
 type Query = z.output<typeof offersQuery>;
-
-const HOUR_S = 3600;
 
 /** The question of a query as that of a body: the simple case, without a plan. */
 export function bodyOfQuery(query: Query): Body {
@@ -29,8 +27,11 @@ export function bodyOfQuery(query: Query): Body {
         }
       : {}),
     block_min: Number(block_min ?? 15) as Body['block_min'],
-    certainties: query.certainty ?? [0.5, 0.75, 0.9, 0.95],
+    certainties: query.certainty ?? [...USUAL_CERTAINTIES],
     plan: [],
+    keep: query.keep === 'true',
+    stale: query.stale,
+    format: query.format,
     ...(query.horizon_h === undefined ? {} : { horizon_h: query.horizon_h }),
     ...(priced
       ? {
@@ -44,9 +45,8 @@ export function bodyOfQuery(query: Query): Body {
 }
 
 /**
- * The core's question, held against the unit and the time of its estimate.
+ * The core's question; see `offersAskOf`.
  *
- * @param asked_ms clock of the daemon in source time
  * @throws HttpFault wrong_value with the field as it was written
  */
 export function offersAsk(
@@ -55,60 +55,10 @@ export function offersAsk(
   now_ms: number,
   asked_ms: number,
 ): OffersAsk {
-  const zone = unit.limits.connection?.time_zone ?? null;
-  const instant = (text: string, field: string): number => {
-    const found = instantOf(text, zone);
-    if ('ms' in found) return found.ms;
-    throw wrongValue(field, text, found.expected);
-  };
-  const block_s = (body.block_min * 60) as OffersAsk['block_s'];
-  const { gate } = body;
-  const ask: OffersAsk = {
-    powers_W: body.powers_MW_el.map((power) => power * 1e6),
-    ...(body.starts === undefined
-      ? {}
-      : { starts_ms: body.starts.map((text, i) => instant(text, `starts.${i}`)) }),
-    ...(gate === undefined
-      ? {}
-      : {
-          gate: {
-            closes_before_s: gate.closes_before_min * 60,
-            count: gate.count,
-            every_s: gate.every_min === undefined ? block_s : gate.every_min * 60,
-          },
-        }),
-    block_s,
-    certainties: body.certainties,
-    legs: body.plan.map(({ mode, power_MW_el, from, to }, i) => ({
-      mode,
-      power_W: power_MW_el * 1e6,
-      from_ms: instant(from, `plan.${i}.from`),
-      to_ms: instant(to, `plan.${i}.to`),
-    })),
-    ...(body.horizon_h === undefined ? {} : { horizon_s: body.horizon_h * HOUR_S }),
-    ...(body.prices === undefined ? {} : { prices: body.prices }),
-    asked_ms,
-  };
   try {
-    requireOffers(unit, now_ms, ask);
+    return offersAskOf(unit, body, now_ms, asked_ms);
   } catch (thrown) {
     if (!(thrown instanceof WrongQuestion)) throw thrown;
-    throw wrongValue(asWritten(thrown.field), thrown.value, thrown.expected);
+    throw wrongValue(thrown.field, thrown.value, thrown.expected);
   }
-  return ask;
-}
-
-/** Names of the core as a client writes them. */
-function asWritten(field: string): string {
-  const names: [RegExp, string][] = [
-    [/powers_W/g, 'powers_MW_el'],
-    [/power_W/g, 'power_MW_el'],
-    [/starts_ms/g, 'starts'],
-    [/^legs/, 'plan'],
-    [/(from|to)_ms/g, '$1'],
-    [/horizon_s/g, 'horizon_h'],
-    [/(closes_before|every|block)_s/g, '$1_min'],
-    [/\[(\d+)\]/g, '.$1'],
-  ];
-  return names.reduce((text, [found, instead]) => text.replace(found, instead), field);
 }

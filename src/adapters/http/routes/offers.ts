@@ -33,7 +33,6 @@ async function answerOffers(
   service: PlantService,
   now: UnitNow,
   body: z.output<typeof offersBody>,
-  keep: boolean,
 ) {
   const { unit } = now;
   const estimate = requireEstimate(now, body.stale);
@@ -44,7 +43,7 @@ async function answerOffers(
   const { head, answer } = await askPlan(service, now, body.stale, question);
   const zone = unit.limits.connection?.time_zone ?? null;
   const table = { ...head, ...offerTable(answer, ask, Date.parse(head.time), zone) };
-  const kept = keep ? service.keepOffers(unit.id, asked_ms, ask, table) : null;
+  const kept = body.keep ? service.keepOffers(unit.id, asked_ms, ask, table) : null;
   return { ...table, kept };
 }
 
@@ -71,11 +70,11 @@ export const offerRoutes: Routes = (app, { service, tuning }) => {
       config,
       schema: {
         operationId: 'offers',
-        summary: 'What the unit can sell: energy per power, start and block at any certainty; kept',
+        summary: 'What the unit can sell: energy per power, start and block at any certainty',
         description:
           'Each block alone is given whatever becomes of the plan before it; jointly, with the plan ' +
           'and all blocks before. For one discharge without a plan the two are the same: who runs ' +
-          'through a block has run through all before it.',
+          'through a block has run through all before it. Kept, unless keep is false.',
         tags,
         params: unitParams,
         body: offersBody,
@@ -84,7 +83,7 @@ export const offerRoutes: Routes = (app, { service, tuning }) => {
     },
     async (request, reply) => {
       const now = unitOf(service, request.params.unit);
-      const table = await answerOffers(service, now, request.body, true);
+      const table = await answerOffers(service, now, request.body);
       reply.header('vary', 'Accept');
       if (!wantsCsv(request.body.format, request.headers.accept)) return table;
       reply.type('text/csv; charset=utf-8; header=present');
@@ -108,8 +107,7 @@ export const offerRoutes: Routes = (app, { service, tuning }) => {
     async (request, reply) => {
       const now = unitOf(service, request.params.unit);
       const { query } = request;
-      const body = { ...bodyOfQuery(query), stale: query.stale };
-      const table = await answerOffers(service, now, body, query.keep === 'true');
+      const table = await answerOffers(service, now, bodyOfQuery(query));
       reply.header('vary', 'Accept');
       if (!wantsCsv(query.format, request.headers.accept)) return table;
       reply.type('text/csv; charset=utf-8; header=present');

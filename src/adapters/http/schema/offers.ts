@@ -2,6 +2,7 @@ import { z } from 'zod';
 import { COMMAND_CAUSES } from '../../../core/plan/leg.js';
 import { MOST_CERTAINTIES } from '../../../core/plan/offerAsk.js';
 import { UNTESTED } from '../../../core/plan/offerReport.js';
+import { USUAL_CERTAINTIES } from '../../../core/plan/offerWords.js';
 import { timeSchema } from './estimate.js';
 import { answerHead, quantilesSchema, staleField } from './plan.js';
 import {
@@ -107,7 +108,7 @@ export const offersBody = z.strictObject(
       .min(1, { error: CERTAINTY })
       .max(MOST_CERTAINTIES, { error: CERTAINTY })
       .describe('Probabilities with which a figure is at least reached')
-      .default([0.5, 0.75, 0.9, 0.95]),
+      .default([...USUAL_CERTAINTIES]),
     plan: z
       .array(
         z.strictObject({
@@ -137,6 +138,10 @@ export const offersBody = z.strictObject(
           .describe('Price of each MWh_el not sold, less what it is worth kept'),
       })
       .optional(),
+    keep: z
+      .boolean({ error: KEEP })
+      .describe('Keep the table for good, for its history and its report')
+      .default(true),
     stale: staleField,
     format: historyQuery.shape.format,
   },
