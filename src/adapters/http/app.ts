@@ -6,18 +6,16 @@ import { fastifySSE } from '@fastify/sse';
 import fastifyStatic from '@fastify/static';
 import swagger from '@fastify/swagger';
 import fastify, { type FastifyBaseLogger, LogController } from 'fastify';
-import {
-  jsonSchemaTransform,
-  validatorCompiler,
-  type ZodTypeProvider,
-} from 'fastify-type-provider-zod';
+import { validatorCompiler, type ZodTypeProvider } from 'fastify-type-provider-zod';
 import { sendError } from './error-answer.js';
 import { HttpFault } from './faults.js';
 import { JsonWriter } from './json.js';
+import { transformSchemas } from './openapi.js';
 import { alarmRoutes } from './routes/alarms.js';
 import { historyRoutes } from './routes/history.js';
 import { offerRoutes } from './routes/offers.js';
 import { planRoutes } from './routes/plan.js';
+import { scheduleRoutes } from './routes/schedule.js';
 import { statusRoutes } from './routes/status.js';
 import { streamRoutes } from './routes/stream.js';
 import { unitRoutes } from './routes/units.js';
@@ -93,7 +91,7 @@ async function addPlugins(app: HttpApp, prefix: string, context: RouteContext): 
       },
       servers: [{ url: prefix === '' ? '/' : prefix }],
     },
-    transform: jsonSchemaTransform,
+    transform: transformSchemas,
   });
 }
 
@@ -173,6 +171,7 @@ export async function createHttpApp(
         unitRoutes,
         planRoutes,
         offerRoutes,
+        scheduleRoutes,
         historyRoutes,
         alarmRoutes,
         streamRoutes,

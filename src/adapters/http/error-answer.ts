@@ -25,10 +25,14 @@ function detailsOf(issue: Issue, request: FastifyRequest, part: Part): Detail[] 
   const source = sent(request, part);
   const path = issue.instancePath.split('/').filter(Boolean);
   if (issue.keyword === 'unrecognized_keys') {
-    const known = keysOf(request.routeOptions.schema?.[part]);
+    const known = keysOf(request.routeOptions.schema?.[part], path);
     const expected = known.length > 0 ? `only ${known.join(', ')}` : 'nothing here';
     const { keys = [] } = issue.params as { keys?: string[] };
-    return keys.map((field) => ({ field, value: valueAt(source, [field]) ?? null, expected }));
+    return keys.map((key) => ({
+      field: [...path, key].join('.'),
+      value: valueAt(source, [...path, key]) ?? null,
+      expected,
+    }));
   }
   const value = valueAt(source, path) ?? null;
   return [{ field: path.join('.') || part, value, expected: issue.message ?? null }];

@@ -67,10 +67,10 @@ export interface UnmetView {
 }
 
 export interface NearestView {
-  readonly blocks: readonly BlockView[];
+  readonly blocks: BlockView[];
   readonly factor_discharge: number;
   readonly factor_charge: number;
-  readonly drawn_in: readonly {
+  readonly drawn_in: {
     readonly mode: Mode;
     readonly asked: string;
     readonly to: string;
@@ -88,15 +88,15 @@ export interface Schedule {
   /** That the stores carry all runs to their end, as far as the machine can be commanded. */
   readonly stores_probability: number;
   readonly ramp_MWh_el: number;
-  readonly unmet: readonly UnmetView[];
+  readonly unmet: UnmetView[];
   readonly first_shortfall: FirstShortfall;
   /** Of the stores alone, in what the machine can be commanded. */
   readonly first_stores_shortfall: FirstShortfall;
-  readonly blocks: readonly (BlockView & BlockFigures)[];
-  readonly runs: readonly RunView[];
+  readonly blocks: (BlockView & BlockFigures)[];
+  readonly runs: RunView[];
   readonly reserve_looked_hours: number;
   /** At block edges, the present first; see chargesAhead. */
-  readonly charge: readonly ChargeView[];
+  readonly charge: ChargeView[];
   /** Edges that `charge` leaves out, where there are more than it holds. */
   readonly charge_left_out: number;
   /** null where none was found. */

@@ -343,6 +343,8 @@ describe('the good answers, each held against the schema that documents it', () 
       '/api/stream',
       '/api/units',
       '/api/units/{unit}',
+      '/api/units/{unit}/balance',
+      '/api/units/{unit}/capability',
       '/api/units/{unit}/headroom',
       '/api/units/{unit}/history',
       '/api/units/{unit}/hours',
@@ -351,6 +353,7 @@ describe('the good answers, each held against the schema that documents it', () 
       '/api/units/{unit}/offers/history/{no}',
       '/api/units/{unit}/offers/report',
       '/api/units/{unit}/profile',
+      '/api/units/{unit}/schedule',
       '/api/units/{unit}/sensors',
       '/metrics',
     ]);

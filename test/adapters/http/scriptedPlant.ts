@@ -24,6 +24,7 @@ import type { WatchEvent } from '../../../src/core/watch/event.js';
 import type { UnitWorth } from '../../../src/core/worth/unitWorth.js';
 import { COLD, HOT, unitOf } from './scriptedDefinitions.js';
 import { scriptedOffers } from './scriptedOffers.js';
+import { scriptedSchedule } from './scriptedSchedule.js';
 
 const START_MS = Date.UTC(2026, 0, 31, 6);
 
@@ -211,6 +212,10 @@ export class ScriptedPlant implements PlantService {
     if (question.kind === 'offers') {
       const charge_MWh = this.moment.charged * 16;
       const answer = scriptedOffers(question.ask, Date.parse(this.time()), charge_MWh);
+      return { time: this.time(), answer };
+    }
+    if (question.kind === 'schedule') {
+      const answer = scriptedSchedule(question.ask, Date.parse(this.time()));
       return { time: this.time(), answer };
     }
     if (question.kind !== 'headroom') throw new RangeError(`not scripted: ${question.kind}`);

@@ -113,7 +113,29 @@ export const streamQuery = z.strictObject({
     .optional(),
 });
 
-/** For the message about an unknown key. */
-export function keysOf(schema: unknown): string[] {
-  return schema instanceof z.ZodObject ? Object.keys(schema.shape) : [];
+/**
+ * For the message about an unknown key.
+ *
+ * @param schema of a part of a question; of a body that may be of several kinds its JSON counts
+ * @param path from there to the object that has the key
+ */
+export function keysOf(schema: unknown, path: readonly string[] = []): string[] {
+  const json = (schema as { content?: Record<string, { schema?: unknown }> } | undefined)
+    ?.content?.['application/json']?.schema;
+  let at: unknown = json ?? schema;
+  for (const key of path) {
+    at = unwrapped(at);
+    if (at instanceof z.ZodArray) at = at.element;
+    else at = at instanceof z.ZodObject ? at.shape[key] : undefined;
+  }
+  at = unwrapped(at);
+  return at instanceof z.ZodObject ? Object.keys(at.shape) : [];
+}
+
+function unwrapped(schema: unknown): unknown {
+  let at = schema;
+  while (at instanceof z.ZodOptional || at instanceof z.ZodNullable || at instanceof z.ZodDefault) {
+    at = at.unwrap();
+  }
+  return at;
 }

@@ -1,0 +1,60 @@
+import type { Schedule } from '../../core/plan/schedule.js';
+import { toCsv } from './csv.js';
+
+const COLUMNS = [
+  'from',
+  'to',
+  'mode',
+  'power_MW_el',
+  'planned_MWh_el',
+  'expected_MWh_el',
+  'certain_MWh_el',
+  'expected_shortfall_MWh_el',
+  'unmet_MWh_el',
+  'ramp_MWh_el',
+  'net_MWh_el',
+  'met_probability',
+] as const;
+
+/** What every row repeats of the answer's head. */
+export interface ScheduleCsvHead {
+  readonly time: string;
+  readonly age_s: number | null;
+  readonly valid_until: string;
+}
+
+/**
+ * A schedule check as rows, one per block, with the states of charge at its end (empty where there
+ * are more edges than the answer holds) and what the whole answer stands on.
+ */
+export function scheduleTable(head: ScheduleCsvHead, schedule: Schedule): string {
+  const stores = Object.keys(schedule.charge[0]?.stores ?? {});
+  const points = new Map(schedule.charge.map((point) => [point.time, point]));
+  const columns = [
+    ...COLUMNS,
+    'state_of_charge_at_end',
+    'state_of_charge_at_end_sigma',
+    ...stores.flatMap((id) => [`${id}_soc_at_end`, `${id}_soc_at_end_sigma`]),
+    ...['schedule_probability', 'certainty', 'estimate_time', 'estimate_age_s', 'valid_until'],
+  ];
+  const rows = schedule.blocks.map((block) => {
+    const at = points.get(block.to);
+    const charges = stores.map((id) => [
+      [`${id}_soc_at_end`, at?.stores[id]?.soc ?? null],
+      [`${id}_soc_at_end_sigma`, at?.stores[id]?.soc_sigma ?? null],
+    ]);
+    return {
+      ...block,
+      state_of_charge_at_end: at?.state_of_charge ?? null,
+      state_of_charge_at_end_sigma: at?.state_of_charge_sigma ?? null,
+      ...Object.fromEntries(charges.flat()),
+      schedule_probability: schedule.probability,
+      certainty: schedule.certainty,
+      time: head.time,
+      estimate_time: head.time,
+      estimate_age_s: head.age_s,
+      valid_until: head.valid_until,
+    };
+  });
+  return toCsv(columns, rows);
+}
