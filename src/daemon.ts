@@ -170,7 +170,7 @@ class RockhourDaemon implements Daemon {
       },
     });
     this.headroomOnHours = new HeadroomOnHours({
-      ...{ questions: this.questions, notices },
+      ...{ questions: this.questions, notices, now: () => performance.now() },
       answered: ({ unit, view }, { time, answers }) => {
         const head = headOf(unit, time, view.estimate?.quality ?? 'blind');
         this.mqtt.announcer.headroom({ ...head, answers });
@@ -231,6 +231,7 @@ class RockhourDaemon implements Daemon {
       () => history.stop(),
     );
     this.ending.push(() => this.questions.stop());
+    this.ending.push(() => this.headroomOnHours.stop());
     await this.begin(
       () => this.replay(),
       () => pipeline.stop(),

@@ -13,8 +13,10 @@ export interface HeadroomAnswer {
 }
 
 export interface HeadroomOnHoursOptions {
-  readonly questions: Questions;
-  readonly notices: Notices;
+  readonly questions: Pick<Questions, 'hasWorker' | 'plan'>;
+  readonly notices: Pick<Notices, 'warn'>;
+  /** Time of this process [ms]. */
+  now(): number;
   answered(runner: UnitRunner, headroom: HeadroomAnswer): void;
 }
 
@@ -37,40 +39,48 @@ interface Turn {
  */
 export class HeadroomOnHours {
   private readonly turns = new Map<string, Turn>();
+  private stopped = false;
 
   constructor(private readonly options: HeadroomOnHoursOptions) {}
 
   /** To be called with each new estimate; `backlog` in journal entries. */
   stepped(runner: UnitRunner, estimate: Estimate, backlog: number): void {
     const { unit } = runner;
+    this.stopped = false;
     const turn = this.turns.get(unit.id) ?? { mode: null, due: false, asking: false, free_ms: 0 };
     this.turns.set(unit.id, turn);
     const changed = turn.mode !== null && turn.mode !== estimate.mode;
     turn.mode = estimate.mode;
     turn.due ||= changed || estimate.dispatch !== undefined;
     if (!this.options.questions.hasWorker || !turn.due || turn.asking) return;
-    if (backlog > MOST_BEHIND || performance.now() < turn.free_ms) return;
+    if (backlog > MOST_BEHIND || this.options.now() < turn.free_ms) return;
     const started = Object.values(estimate.stores).every((s) => s.fronts_reason !== 'not_started');
     if (!started) return;
     turn.due = false;
-    this.ask(runner, estimate.time, turn).catch((thrown: unknown) =>
-      this.options.notices.warn('questions', `headroom of unit ${unit.id}: ${reasonOf(thrown)}`),
-    );
+    this.ask(runner, estimate.time, turn).catch((thrown: unknown) => {
+      if (this.stopped) return;
+      this.options.notices.warn('questions', `headroom of unit ${unit.id}: ${reasonOf(thrown)}`);
+    });
+  }
+
+  /** To be called before the questions end: what is on its way then is no trouble. */
+  stop(): void {
+    this.stopped = true;
   }
 
   private async ask(runner: UnitRunner, time: string, turn: Turn): Promise<void> {
-    const { questions, answered } = this.options;
+    const { questions, answered, now } = this.options;
     const { unit } = runner;
-    const begun_ms = performance.now();
+    const begun_ms = now();
     turn.asking = true;
     try {
       const ask = { powers_W: chargingPowers(unit) };
       const answer = await questions.plan(unit, runner.snapshot(), { kind: 'headroom', ask });
       answered(runner, { time, answers: answer as readonly Headroom[] });
     } finally {
-      const now_ms = performance.now();
+      const ended_ms = now();
       turn.asking = false;
-      turn.free_ms = now_ms + REST * (now_ms - begun_ms);
+      turn.free_ms = ended_ms + REST * (ended_ms - begun_ms);
     }
   }
 }
