@@ -29,8 +29,9 @@ describe.each([
   const rated = unit.rated_power_W;
 
   it('headroom: p90 below p50 below p10, ended by a store, more of it at less power', () => {
-    const [more, less] = headroomOf(context, { powers_W: [charging_W, charging_W / 2] });
-    for (const { hours, energy_MWh_el, ends_by, refused } of [more, less] as const) {
+    const found = headroomOf(context, { powers_W: [charging_W, charging_W / 2] });
+    const [more, less] = found;
+    for (const { hours, energy_MWh_el, ends_by, refused } of found) {
       expect(refused).toBeNull();
       expect(rules).toContain(ends_by);
       expect(hours.p90).toBeLessThan(hours.p50);
