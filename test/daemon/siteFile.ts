@@ -6,15 +6,24 @@ import { temporaryFolder } from '../support/folders.js';
 
 const DEMO = fileURLToPath(new URL('../../config/demo.yaml', import.meta.url));
 
-/** The demonstration's site file with other blocks, in a folder of its own. */
-export function siteFile(blocks: Readonly<Record<string, object>>): {
+/**
+ * The demonstration's site file with other blocks, in a folder of its own.
+ *
+ * @param cells of its estimator: few where physics does not matter and questions should be quick
+ */
+export function siteFile(
+  blocks: Readonly<Record<string, object>>,
+  cells?: number,
+): {
   readonly path: string;
   readonly folder: string;
 } {
   const folder = temporaryFolder('site');
   const path = join(folder, 'site.yaml');
   const site = parse(readFileSync(DEMO, 'utf8')) as Record<string, object>;
+  const units = (site.units as object[]).map((unit) => ({ ...unit, estimator: { cells } }));
+  const few = cells === undefined ? {} : { units };
   const own = { store: { folder: './data' }, http: { port: 0 }, ...blocks };
-  writeFileSync(path, stringify({ ...site, ...own }));
+  writeFileSync(path, stringify({ ...site, ...few, ...own }));
   return { path, folder: join(folder, 'data') };
 }
