@@ -9,6 +9,7 @@ import { register as registerHours } from './commands/hours.js';
 import { register as registerOffers } from './commands/offers.js';
 import { register as registerReplay } from './commands/replay.js';
 import { packageVersion, register as registerRun } from './commands/run.js';
+import { register as registerSchedule } from './commands/schedule.js';
 import { register as registerSensors } from './commands/sensors.js';
 import { register as registerTune } from './commands/tune.js';
 import { EXIT_CODES, exitCodeOf, explain, RockhourError } from './errors.js';
@@ -21,6 +22,7 @@ const COMMANDS = [
   registerHours,
   registerHeadroom,
   registerOffers,
+  registerSchedule,
   registerCapability,
   registerBalance,
   registerTune,

@@ -1,0 +1,83 @@
+import type { RunView, Schedule, ShortfallView } from '../../core/plan/schedule.js';
+import { table } from '../table.js';
+
+const three = (value: number): string => value.toFixed(3);
+const percent = (share: number): string => `${(share * 100).toFixed(1)} %`;
+
+function shortfall(first: ShortfallView | null): string {
+  return first === null
+    ? 'nothing is short'
+    : `from ${first.time} on ${three(first.MWh_el)} MWh_el, ${first.cause}`;
+}
+
+function runsText({ runs, reserve_looked_hours }: Schedule): string[] {
+  if (runs.length === 0) return ['No run: the unit stands.'];
+  const more = `> ${reserve_looked_hours.toFixed(1)}`;
+  const reserve = (run: RunView) =>
+    [run.reserve_hours.p90, run.reserve_hours.p50, run.reserve_hours.p10].map((hours) =>
+      hours === null ? more : hours.toFixed(2),
+    );
+  const header = ['run', 'from', 'to', 'holds', 'h past p90', 'p50', 'p10', 'ends by', 'stops'];
+  const rows = runs.map((run) => [
+    ...[run.mode, run.from, run.to, percent(run.probability), ...reserve(run)],
+    ...[run.ends_by ?? 'nothing near', run.stops ?? 'no'],
+  ]);
+  return [table(header, rows)];
+}
+
+function blocksText(schedule: Schedule): string[] {
+  const points = new Map(schedule.charge.map((point) => [point.time, point]));
+  const header = ['from', 'to', 'mode', 'MW_el', 'MWh_el', 'expected', 'certain', 'short', 'ramp'];
+  const rows = schedule.blocks.map((block) => {
+    const at = points.get(block.to);
+    return [
+      ...[block.from, block.to, block.mode, three(block.power_MW_el)],
+      ...[block.planned_MWh_el, block.expected_MWh_el, block.certain_MWh_el].map(three),
+      ...[block.expected_shortfall_MWh_el, block.ramp_MWh_el].map(three),
+      percent(block.met_probability),
+      at === undefined ? '-' : percent(at.state_of_charge),
+    ];
+  });
+  return [table([...header, 'met', 'charge after'], rows)];
+}
+
+function unmetText({ unmet }: Schedule): string[] {
+  if (unmet.length === 0) return [];
+  const rows = unmet.map((part) => [
+    ...[part.from, part.to, part.cause, three(part.missing_MW_el), three(part.MWh_el)],
+  ]);
+  const header = ['from', 'to', 'cause', 'MW_el missing', 'MWh_el'];
+  return ['What machine, connection or outages do not allow:', table(header, rows)];
+}
+
+function nearestText({ nearest, certainty }: Schedule): string {
+  const sure = percent(certainty);
+  if (nearest === null) return `No schedule near it was found that holds with ${sure}.`;
+  const { factor_discharge, factor_charge, drawn_in, taken_out, probability } = nearest;
+  const changes = [
+    ...(factor_discharge < 1 ? [`discharging powers x ${factor_discharge.toFixed(4)}`] : []),
+    ...(factor_charge < 1 ? [`charging powers x ${factor_charge.toFixed(4)}`] : []),
+    ...drawn_in.map(({ mode, asked, to }) => `${mode} until ${to} instead of ${asked}`),
+    ...(taken_out ? ['without what is not allowed'] : []),
+  ];
+  const how = changes.length > 0 ? changes.join(', ') : 'as it is';
+  return `Nearest that holds with ${sure}: ${how}; it holds with ${percent(probability)}.`;
+}
+
+/** A schedule check for people. */
+export function scheduleText(schedule: Schedule): string[] {
+  const { probability, stores_probability, certainty, first_shortfall, ramp_MWh_el } = schedule;
+  const stores =
+    probability === stores_probability ? '' : `; as far as allowed ${percent(stores_probability)}`;
+  return [
+    `Holds with ${percent(probability)}${stores}. First shortfall:`,
+    `  with 50 %: ${shortfall(first_shortfall.p50)}`,
+    `  with ${percent(certainty)}: ${shortfall(first_shortfall.certain)}`,
+    ...unmetText(schedule),
+    ...runsText(schedule),
+    ...blocksText(schedule),
+    `Ramps take ${three(ramp_MWh_el)} MWh_el, which is no shortfall.`,
+    nearestText(schedule),
+    'MWh_el at the connection point, in the direction of the block; given that the machine runs.',
+  ];
+}
