@@ -9,6 +9,7 @@ import {
   headLine,
   stateFromRecording,
 } from './aheadState.js';
+import { limitLine } from './hours.js';
 import { table } from './table.js';
 import { parsePowers_W } from './values.js';
 
@@ -40,6 +41,9 @@ function text(answer: HeadroomAnswer): string {
     headLine(answer),
     'Charging from now, hours and MWh_el it can still take:',
     table([...header, 'ends by'], rows),
+    ...answer.answers.flatMap(({ power_MW_el, refused, limited_by }) =>
+      limited_by === null || refused !== null ? [] : [limitLine(power_MW_el, 'taken', limited_by)],
+    ),
     'p90 is the firm figure: exceeded with 90 % probability.',
   ].join('\n');
 }

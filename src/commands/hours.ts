@@ -87,7 +87,7 @@ async function fromDaemon(url: string, options: HoursOptions): Promise<HoursAnsw
   };
 }
 
-export const LIMIT_WORDS: Readonly<Record<CommandCause, string>> = {
+const LIMIT_WORDS: Readonly<Record<CommandCause, string>> = {
   start_up: 'the unit has to start first',
   change_over: 'the unit has to change its direction first',
   below_least_power: 'less than the machine can hold',
@@ -95,6 +95,11 @@ export const LIMIT_WORDS: Readonly<Record<CommandCause, string>> = {
   connection: 'more than the connection lets through at some time of it',
   outage: 'an outage is planned within it',
 };
+
+/** One line about a power that a limit keeps the unit from. */
+export function limitLine(power_MW: number, done: 'given' | 'taken', cause: CommandCause): string {
+  return `${power_MW} MW cannot be ${done} all the while (${cause}): ${LIMIT_WORDS[cause]}.`;
+}
 
 function text(answer: HoursAnswer): string {
   const age = answer.age_s === null ? '' : `, ${Math.round(answer.age_s)} s old`;
@@ -115,11 +120,7 @@ function text(answer: HoursAnswer): string {
     `${answer.unit}: estimate of ${answer.time}${age}, quality ${answer.quality ?? 'unknown'}${charge}`,
     table([...header, 'ends by'], rows),
     ...answer.answers.flatMap(({ power_MW, limited_by }) =>
-      limited_by === null
-        ? []
-        : [
-            `${power_MW} MW cannot be given all the while (${limited_by}): ${LIMIT_WORDS[limited_by]}.`,
-          ],
+      limited_by === null ? [] : [limitLine(power_MW, 'given', limited_by)],
     ),
     'p90 is the firm figure: exceeded with 90 % probability.',
   ].join('\n');

@@ -222,7 +222,14 @@ export class ScriptedPlant implements PlantService {
     const answer = question.ask.powers_W.map((power_W): Headroom => {
       const { hours, energy_MWh_el } = this.answer(power_W / 1e6);
       const power_MW_el = power_W / 1e6;
-      return { power_MW_el, hours, energy_MWh_el, ends_by: 'hot_outlet', refused: null };
+      return {
+        power_MW_el,
+        hours,
+        energy_MWh_el,
+        ends_by: 'hot_outlet',
+        refused: null,
+        limited_by: null,
+      };
     });
     return { time: this.time(), answer };
   }

@@ -46,12 +46,18 @@ describe('hours at a power', () => {
     [45e3, 8.1, 'outage'],
     [60e3, 0, null],
   ])('of %i W for %f h are limited by %s', (power_W, hours, cause) => {
-    expect(limitedBy(unit, power_W, NOW, hours * HOUR)).toBe(cause);
+    expect(limitedBy(unit, 'discharge', power_W, NOW, hours * HOUR)).toBe(cause);
   });
 
   it('are limited by the machine alone where nothing else is configured', () => {
-    expect(limitedBy(plain, 95e3, NOW, HOUR)).toBe('above_greatest_power');
-    expect(limitedBy(plain, 90e3, NOW, HOUR)).toBeNull();
+    expect(limitedBy(plain, 'discharge', 95e3, NOW, HOUR)).toBe('above_greatest_power');
+    expect(limitedBy(plain, 'discharge', 90e3, NOW, HOUR)).toBeNull();
+  });
+
+  it('of charging are limited by what may be taken', () => {
+    expect(limitedBy(unit, 'charge', 150e3, NOW, 9 * HOUR)).toBeNull();
+    expect(limitedBy(unit, 'charge', 160e3, NOW, 1 * HOUR)).toBe('connection');
+    expect(limitedBy(unit, 'charge', 19e3, NOW, 1 * HOUR)).toBe('below_least_power');
   });
 
   it('keep their figures; those of one power are judged up to p10', () => {
@@ -63,7 +69,7 @@ describe('hours at a power', () => {
   });
 
   it('refuse a power that is none', () => {
-    expect(() => limitedBy(unit, Number.NaN, NOW, HOUR)).toThrow(RangeError);
+    expect(() => limitedBy(unit, 'discharge', Number.NaN, NOW, HOUR)).toThrow(RangeError);
   });
 });
 

@@ -250,7 +250,7 @@ describe('an offer that is limited', () => {
     expect([low, high].every((offer) => offer.hours.p10 === 0)).toBe(true);
   });
 
-  it('ends at an outage that is planned, which is its cause', () => {
+  it('is down when a planned outage begins, which is its cause', () => {
     const outages = [
       {
         ...{ from_ms: 2 * HOUR_MS, to_ms: 9 * HOUR_MS, discharge_max_W: 0, charge_max_W: 0 },
@@ -263,8 +263,9 @@ describe('an offer that is limited', () => {
     );
     const offer = only(offersOf(out, ask()));
     expect(offer.ends_by).toEqual({ outage: 1 });
-    expect(offer.hours.p90).toBeCloseTo(1, 9);
-    expect(offer.at[0]!.whole_blocks.alone).toBe(4);
+    // 60 kW at 100 W/s: the ramp down takes the last ten minutes of the hour before it.
+    expect(offer.hours.p90).toBeCloseTo(1 - 600 / 3600, 9);
+    expect(offer.at[0]!.whole_blocks.alone).toBe(3);
   });
 });
 

@@ -1,5 +1,6 @@
 import { z } from 'zod';
 import { END_CAUSES, QUALITIES } from '../../../core/estimate.js';
+import { COMMAND_CAUSES } from '../../../core/plan/leg.js';
 import { timeSchema } from './estimate.js';
 import { limitsSchema } from './limits.js';
 import { hoursQuery } from './questions.js';
@@ -48,6 +49,10 @@ export const headroomSchema = z.object({
       energy_MWh_el: quantilesSchema.describe('Taken from the grid meanwhile, start-up included'),
       ends_by: z.enum(END_CAUSES).nullable().describe('null: nothing within the time looked ahead'),
       refused: z.string().nullable().describe('Why it would not run at this power; null: it would'),
+      limited_by: z
+        .enum(COMMAND_CAUSES)
+        .nullable()
+        .describe('What keeps it from this power at some time within p10; null: nothing does'),
     }),
   ),
 });
