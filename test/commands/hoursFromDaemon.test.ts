@@ -94,6 +94,19 @@ describe('rockhour hours of a running daemon', () => {
     expect(answer.answers).toHaveLength(2);
   });
 
+  it('gives headroom and capability as the API does', async () => {
+    const headroom = await rockhour(['headroom', '--url', url, '--power', '2.4', '--json']);
+    expect(headroom.code).toBe(0);
+    const direct = await api('/api/units/vellmoor/headroom?power_MW=2.4');
+    const { age_s, ...answer } = JSON.parse(headroom.stdout);
+    expect(answer).toEqual(expect.objectContaining({ answers: direct.answers, time: direct.time }));
+    expect(age_s).toBeGreaterThan(0);
+    const { stdout, code } = await rockhour(['capability', '--url', url, '--tolerance', '0.05']);
+    expect(code).toBe(0);
+    expect(stdout).toMatch(/^Discharging at most; ends by \w+; largest error 0\.0\d+ MW_el /m);
+    expect(stdout).toMatch(/^Cycle \d from now, /m);
+  });
+
   it('gives what the thermocouples of the present state are worth, as text', async () => {
     const { stdout, code } = await rockhour(['sensors', '--url', url, '--store', 'hot', '--all']);
     expect(code).toBe(0);
