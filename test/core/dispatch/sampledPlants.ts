@@ -10,7 +10,7 @@ import type { TubeState } from '../../../src/core/track/tube.js';
 import { mulberry } from '../../support/random.js';
 
 /** Lower Cholesky factor of a tube's covariance; a pivot lost to round-off gives a zero column. */
-function factorOf(p: Float64Array, size: number): Float64Array {
+export function factorOf(p: Float64Array, size: number): Float64Array {
   const l = new Float64Array(size * size);
   for (let j = 0; j < size; j++) {
     for (let i = j; i < size; i++) {
