@@ -34,14 +34,8 @@ export function planContext(model: UnitModel, state: UnitState): PlanContext {
 
 /** How the unit runs now: its power follows from its flow by the machine model. */
 function runningBefore(model: UnitModel, state: UnitState): RunningBefore {
-  const { charge, discharge } = state.factors;
-  const ran = Math.min(charge.age_s, discharge.age_s);
-  const last = Number.isFinite(ran)
-    ? charge.age_s < discharge.age_s
-      ? 'charge'
-      : 'discharge'
-    : null;
-  if (state.mode === 'stand') return { mode: 'stand', power_W: 0, stood_s: ran, last };
+  const { stood_s = Number.POSITIVE_INFINITY, ran = null } = state.conditions;
+  if (state.mode === 'stand') return { mode: 'stand', power_W: 0, stood_s, last: ran };
   const hot = model.stores.findIndex((s) => s.store.kind === 'hot');
   const cold = model.stores.findIndex((s) => s.store.kind === 'cold');
   const charging = state.mode === 'charge';

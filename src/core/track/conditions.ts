@@ -61,6 +61,10 @@ export interface ConditionsState {
   idle_s: number;
   /** Scans in which mode channel and flow contradict each other. */
   disagreements: number;
+  /** Time since it last ran [s], 0 while it runs; Infinity or absent (a state saved before) = unknown. */
+  stood_s?: number;
+  /** Direction in which it runs or ran last; null or absent = unknown. */
+  ran?: Direction | null;
 }
 
 export function startConditions(): ConditionsState {
@@ -72,6 +76,8 @@ export function startConditions(): ConditionsState {
     unknown_s: 0,
     idle_s: 0,
     disagreements: 0,
+    stood_s: Number.POSITIVE_INFINITY,
+    ran: null,
   };
 }
 
@@ -163,6 +169,11 @@ export function readConditions(
   else if (told === 0) state.mode = 'stand';
   else if (!standing) state.mode = flow > 0 ? 'charge' : 'discharge';
   else if (state.belowStand >= STAND_SCANS) state.mode = 'stand';
+  if (state.mode === 'stand') state.stood_s = (state.stood_s ?? Number.POSITIVE_INFINITY) + dt_s;
+  else {
+    state.stood_s = 0;
+    state.ran = state.mode;
+  }
 
   return {
     mode: state.mode,

@@ -45,6 +45,26 @@ function plant(roles: Record<string, ChannelRole>) {
   return { unit, machine, state, read };
 }
 
+describe('what a unit remembers of its running', () => {
+  it('is how long it has stood and which way it ran, power known or not', () => {
+    const { read, state } = plant({ flow: FLOW, mode: MODE });
+    read({ flow: 0, mode: 0 });
+    expect([state.stood_s, state.ran]).toEqual([Number.POSITIVE_INFINITY, null]);
+    read({ flow: -1, mode: -1 });
+    expect([state.stood_s, state.ran]).toEqual([0, 'discharge']);
+    read({ flow: 0, mode: 0 });
+    read({ flow: 0, mode: 0 });
+    expect([state.stood_s, state.ran]).toEqual([2 * PERIOD_S, 'discharge']);
+    read({ flow: 1, mode: 1 });
+    expect([state.stood_s, state.ran]).toEqual([0, 'charge']);
+    // A state of before these were kept counts from now on, unknown until it runs.
+    delete state.stood_s;
+    delete state.ran;
+    read({ flow: 0, mode: 0 });
+    expect(state.stood_s).toBe(Number.POSITIVE_INFINITY);
+  });
+});
+
 describe('mode', () => {
   it('is that of the mode channel, whatever valves, flow and power say', () => {
     const { read } = plant({
