@@ -17,6 +17,7 @@ import type { UnitDefinition } from '../src/core/definitions.js';
 import { advance, hoursAt, startUnit } from '../src/core/unit.js';
 import { unitModel } from '../src/core/unitModel.js';
 import { createDemoPlant } from '../src/plant/demoPlant.js';
+import { benchAhead } from './bench/ahead.js';
 import { helpIfAsked } from './help.js';
 
 helpIfAsked(import.meta.url);
@@ -187,4 +188,5 @@ const week = `${folder}/week.csv`;
 await recordWeek(unit, week);
 benchKernel(unit);
 await benchScans(unit, week);
+await benchAhead(unit, week, line);
 await benchWeek(unit, week);

@@ -1,10 +1,15 @@
+import { RULES } from '../dispatch/rollout.js';
+import type { EndCause } from '../estimate.js';
 import type { Course } from './course.js';
+import type { Episode } from './episode.js';
 import type { PlanResponse, RuleTime } from './spread.js';
 
-/** Slopes at one power, to go between by. */
+/** A power of which all was marched, to go between by. */
 export interface ResponseNode {
   readonly power_W: number;
+  /** The best march, and that on the estimate's own cells. */
   readonly course: Course;
+  readonly base: Course;
   readonly times: readonly RuleTime[];
   readonly response: PlanResponse;
 }
@@ -34,6 +39,65 @@ export function nodesAmong(powers_W: readonly number[]): number[] {
   return nodes;
 }
 
+/** The two nodes about a power, and how far it stands from the lower to the higher, in ln(power). */
+function about(nodes: readonly ResponseNode[], power_W: number) {
+  const above = nodes.findIndex((node) => node.power_W >= power_W);
+  const high = nodes[above];
+  const low = nodes[Math.max(0, above - 1)];
+  if (high === undefined || low === undefined || low.power_W > power_W) return null;
+  const span = Math.log(high.power_W / low.power_W);
+  return { low, high, weight: span > 0 ? Math.log(power_W / low.power_W) / span : 0 };
+}
+
+/**
+ * The best march at a power between two whose own were made: that on the estimate's own cells, the
+ * length of each run until each rule taken at the ratio of the two marches, which goes linearly in
+ * ln(power) from one node to the other.
+ *
+ * @param nodes ascending in power, the power asked for among them
+ * @param base march on the estimate's own cells at the power asked for
+ * @returns null where a rule breaks in `base` that breaks at neither node: it has to be marched
+ */
+export function blendCourse(
+  nodes: readonly ResponseNode[],
+  power_W: number,
+  base: Course,
+): Course | null {
+  const sides = about(nodes, power_W);
+  if (sides === null) return null;
+  const { low, high, weight } = sides;
+  const ratioAt = (node: ResponseNode, e: number, rule: number): number => {
+    const best = node.course.episodes[e];
+    const own = node.base.episodes[e];
+    if (best === undefined || own === undefined) return Number.NaN;
+    return lasted(best, rule) / lasted(own, rule);
+  };
+  const episodes: Episode[] = [];
+  for (const [e, episode] of base.episodes.entries()) {
+    const times_s = episode.times_s.map((time_s, rule) => {
+      if (!Number.isFinite(time_s)) return time_s;
+      const a = ratioAt(low, e, rule);
+      const b = ratioAt(high, e, rule);
+      const ratio = Number.isFinite(a) && Number.isFinite(b) ? a + (b - a) * weight : a || b;
+      return episode.from_s + lasted(episode, rule) * ratio;
+    });
+    if (times_s.some(Number.isNaN)) return null;
+    let first_s = Number.POSITIVE_INFINITY;
+    let ends_by: EndCause = 'empty';
+    times_s.forEach((time_s, rule) => {
+      if (!(time_s < first_s)) return;
+      first_s = time_s;
+      ends_by = RULES[rule] as EndCause;
+    });
+    episodes.push({ ...episode, times_s, first_s, ends_by });
+  }
+  return { ...base, episodes };
+}
+
+function lasted(episode: Episode, rule: number): number {
+  return (episode.times_s[rule] as number) - episode.from_s;
+}
+
 /**
  * Slopes at a power between two whose own were marched. What a run's end moves by, over the run's
  * length, changes little with its power: that ratio goes linearly in ln(power) from one to the other.
@@ -49,12 +113,9 @@ export function blendResponse(
   course: Course,
   times: readonly RuleTime[],
 ): PlanResponse | null {
-  const above = nodes.findIndex((node) => node.power_W >= power_W);
-  const high = nodes[above];
-  const low = nodes[Math.max(0, above - 1)];
-  if (high === undefined || low === undefined || low.power_W > power_W) return null;
-  const span = Math.log(high.power_W / low.power_W);
-  const weight = span > 0 ? Math.log(power_W / low.power_W) / span : 0;
+  const sides = about(nodes, power_W);
+  if (sides === null) return null;
+  const { low, high, weight } = sides;
   const rows = times.map((q) => {
     const length = lengthOf(course, q);
     const share = (node: ResponseNode, own: number): { at: number; factor: number }[] => {

@@ -1,13 +1,14 @@
 import { RULES } from '../dispatch/rollout.js';
 import type { EndCause, Quantiles } from '../estimate.js';
-import { blendResponse, nodesAmong, type ResponseNode } from './blend.js';
+import { blendCourse, blendResponse, nodesAmong, type ResponseNode } from './blend.js';
 import type { PlanContext } from './context.js';
+import type { Course } from './course.js';
 import { worthBidding } from './newsvendor.js';
 import { type OffersAsk, requireOffers } from './offerAsk.js';
 import { type OfferBlock, type OfferFigures, offerFigures } from './offerFigures.js';
 import { type Limited, type OfferRoute, offerRoutes } from './offerRoute.js';
-import { createOutlook } from './outlook.js';
-import { breaksOf, covarianceOf, responseOf, ruleTimes } from './spread.js';
+import { type Change, createOutlook } from './outlook.js';
+import { breaksOf, covarianceOf, type Marches, responseOf, ruleTimes } from './spread.js';
 import { createTrunk, type Trunk } from './trunk.js';
 
 /** What ends an offered discharge: a stop rule, or what was commanded. */
@@ -42,8 +43,8 @@ const LONGEST_STEP = 2.5;
  * The wait is marched as what it is, with the plan until the start, its losses and the spreading of
  * the fronts. Of each discharge the first rule that breaks ends it, by the joint distribution of the
  * rules' times (see `spreadOf`); the greatest flow counts as one, since power falls from then on.
- * What several powers have in common before their start is marched once, and slopes are marched at
- * three powers and go between them in relative terms (see `blendResponse`).
+ * What several powers have in common before their start is marched once. The best march and its slopes
+ * are made at some powers and go between them in relative terms (see `blendCourse`, `blendResponse`).
  *
  * Block by block, `alone` is the probability that a block is run through whatever became of the plan,
  * `jointly` that it is run through with all blocks before it and the plan. One discharge without a plan
@@ -73,27 +74,40 @@ export function offersOf(context: PlanContext, ask: OffersAsk): Offer[] {
       const outlook = createOutlook(model, state, load);
       const longer = Math.min(LONGEST_STEP, Math.max(1, 1 / load));
       const marches = trunkOf(route).marches(outlook, route.tail, longer);
+      return { route, outlook, marches, base: marches.march() };
+    });
+    const wholly = ({ route, marches, base }: (typeof marched)[number]): ResponseNode => {
       const course = marches.best();
-      return { route, outlook, marches, course, times: ruleTimes(course) };
-    });
-    const nodes = nodesAmong(open.map((route) => route.power_W)).map((i): ResponseNode => {
-      const { route, marches, course, times } = marched[i] as (typeof marched)[number];
-      const response = responseOf(model, marches, times);
-      return { power_W: route.power_W, course, times, response };
-    });
+      const times = ruleTimes(course);
+      const known = { ...marches, march: (change?: Change) => marchOr(base, marches, change) };
+      const response = responseOf(model, known, times);
+      return { power_W: route.power_W, course, base, times, response };
+    };
+    const chosen = nodesAmong(open.map((route) => route.power_W));
+    const nodes = chosen.map((i) => wholly(marched[i] as (typeof marched)[number]));
+    const between = (one: (typeof marched)[number]): ResponseNode => {
+      const { power_W } = one.route;
+      const course = blendCourse(nodes, power_W, one.base);
+      const times = course === null ? [] : ruleTimes(course);
+      const response = course === null ? null : blendResponse(nodes, power_W, course, times);
+      if (course === null || response === null) return wholly(one);
+      return { power_W, course, base: one.base, times, response };
+    };
     const offers = new Map(
-      marched.map(({ route, outlook, marches, course, times }) => {
-        const own = nodes.find((node) => node.course === course)?.response;
-        const response =
-          own ??
-          blendResponse(nodes, route.power_W, course, times) ??
-          responseOf(model, marches, times);
+      marched.map((one, i) => {
+        const { route, outlook } = one;
+        const { course, times, response } = nodes[chosen.indexOf(i)] ?? between(one);
         const covariance = covarianceOf(outlook, route.command, course, times, response);
         return [route, offerOf(route, { course, times, covariance }, ask, certainty)] as const;
       }),
     );
     return routes.map((route) => offers.get(route) ?? nothing(route, certainty, ask));
   });
+}
+
+/** The march without a change is at hand. */
+function marchOr(base: Course, marches: Marches, change: Change | undefined): Course {
+  return change === undefined ? base : marches.march(change);
 }
 
 function offerOf(
