@@ -39,12 +39,26 @@ export function nodesAmong(powers_W: readonly number[]): number[] {
   return nodes;
 }
 
+/** Shorter runs are all start: what ends them is no share of their length [s]. */
+const SHORT_S = 3600;
+/** Further apart the two marches do not tell of each other. */
+const UNLIKE = 0.1;
+
+/** Whether a node's last run, in either march, is too short to go by. */
+function isShort({ course, base }: ResponseNode): boolean {
+  return [course, base].some(({ episodes }) => {
+    const last = episodes[episodes.length - 1];
+    return last === undefined || last.first_s - last.from_s < SHORT_S;
+  });
+}
+
 /** The two nodes about a power, and how far it stands from the lower to the higher, in ln(power). */
 function about(nodes: readonly ResponseNode[], power_W: number) {
   const above = nodes.findIndex((node) => node.power_W >= power_W);
   const high = nodes[above];
   const low = nodes[Math.max(0, above - 1)];
   if (high === undefined || low === undefined || low.power_W > power_W) return null;
+  if (isShort(low) || isShort(high)) return null;
   const span = Math.log(high.power_W / low.power_W);
   return { low, high, weight: span > 0 ? Math.log(power_W / low.power_W) / span : 0 };
 }
@@ -56,7 +70,8 @@ function about(nodes: readonly ResponseNode[], power_W: number) {
  *
  * @param nodes ascending in power, the power asked for among them
  * @param base march on the estimate's own cells at the power asked for
- * @returns null where a rule breaks in `base` that breaks at neither node: it has to be marched
+ * @returns null where a rule breaks in `base` that breaks at neither node, or the two marches or the
+ *   nodes tell too little of each other: it has to be marched
  */
 export function blendCourse(
   nodes: readonly ResponseNode[],
@@ -79,7 +94,8 @@ export function blendCourse(
       const a = ratioAt(low, e, rule);
       const b = ratioAt(high, e, rule);
       const ratio = Number.isFinite(a) && Number.isFinite(b) ? a + (b - a) * weight : a || b;
-      return episode.from_s + lasted(episode, rule) * ratio;
+      const alike = Math.abs(ratio - 1) <= UNLIKE && lasted(episode, rule) >= 0;
+      return alike ? episode.from_s + lasted(episode, rule) * ratio : Number.NaN;
     });
     if (times_s.some(Number.isNaN)) return null;
     let first_s = Number.POSITIVE_INFINITY;
@@ -105,7 +121,8 @@ function lasted(episode: Episode, rule: number): number {
  *
  * @param nodes ascending in power, the power asked for among them
  * @param times, course at the power asked for
- * @returns null where a rule of `times` is known at neither: its slopes have to be marched
+ * @returns null where a rule of `times` is known at neither, or a node's run is too short: its slopes
+ *   have to be marched
  */
 export function blendResponse(
   nodes: readonly ResponseNode[],
