@@ -4,6 +4,8 @@ import type { HistoryPoint } from './service.js';
 
 const COLUMNS = [
   'time',
+  'age_s',
+  'valid_until',
   'power_MW_el',
   'start',
   'part',
@@ -21,20 +23,28 @@ const COLUMNS = [
   'refused',
 ] as const;
 
+/** What the table stands on, and until when. */
+export interface CsvHead {
+  readonly time: string;
+  readonly age_s: number | null;
+  readonly valid_until: string;
+}
+
 /**
  * An offer table as rows: per power, start and certainty one of the `whole` discharge, then one per
  * `block`. What a part does not have is empty.
  */
-export function offersCsv(time: string, table: OfferTable): string {
+export function offersCsv(head: CsvHead, table: OfferTable): string {
+  const { time, age_s, valid_until } = head;
   return toCsv(
     COLUMNS,
-    table.offers.flatMap((offer) => rowsOf(time, offer)),
+    table.offers.flatMap((offer) => rowsOf({ time, age_s, valid_until }, offer)),
   );
 }
 
-function rowsOf(time: string, offer: WrittenOffer): HistoryPoint[] {
+function rowsOf(stand: CsvHead, offer: WrittenOffer): HistoryPoint[] {
   const { power_MW_el, start, begins, refused } = offer;
-  const head = { time, power_MW_el, start, refused };
+  const head = { ...stand, power_MW_el, start, refused };
   const whole = offer.at.map(
     ({ whole_blocks, ...at }): HistoryPoint => ({
       ...head,

@@ -156,13 +156,15 @@ describe('GET /api/units/{unit}/offers', () => {
     const byAccept = await get(`${URL}?${query}`, { accept: 'text/csv' });
     expect(byAccept.body).toBe(byFormat.body);
     const [header, ...rows] = byFormat.body.trimEnd().split('\r\n');
-    expect(header).toMatch(/^time,power_MW_el,start,part,from,to,certainty,energy_MWh_el,/);
+    expect(header).toMatch(
+      /^time,age_s,valid_until,power_MW_el,start,part,from,to,certainty,energy_MWh_el,/,
+    );
     // 0.62 x 16 MWh at 2 MW: 4.96 h, at most 1.1 of it, so six blocks; two certainties each.
     expect(rows).toHaveLength(2 * (1 + 6));
-    const blocks = rows.map((row) => row.split(',')).filter((row) => row[3] === 'block');
-    const sum = blocks.filter((row) => row[6] === '0.9').reduce((a, row) => a + Number(row[7]), 0);
-    const whole = rows.map((row) => row.split(',')).find((row) => row[6] === '0.9')!;
-    expect(sum).toBeCloseTo(Number(whole[7]), 9);
+    const blocks = rows.map((row) => row.split(',')).filter((row) => row[5] === 'block');
+    const sum = blocks.filter((row) => row[8] === '0.9').reduce((a, row) => a + Number(row[9]), 0);
+    const whole = rows.map((row) => row.split(',')).find((row) => row[8] === '0.9')!;
+    expect(sum).toBeCloseTo(Number(whole[9]), 9);
   });
 
   it('refuses one price alone', async () => {

@@ -124,6 +124,7 @@ describe('the interval of a share', () => {
         expect(from).toBeGreaterThanOrEqual(0);
         expect(to).toBeLessThanOrEqual(1);
       }),
+      { seed: 4 },
     );
   });
 });

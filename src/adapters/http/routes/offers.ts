@@ -62,7 +62,7 @@ export const offerRoutes: Routes = (app, { service, tuning }) => {
     ...faults,
   };
   type Table = Awaited<ReturnType<typeof answerOffers>>;
-  const csvOf = (table: Table): string => offersCsv(table.time, table);
+  const csvOf = (table: Table): string => offersCsv(table, table);
 
   app.post(
     '/api/units/:unit/offers',
