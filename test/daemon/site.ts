@@ -5,6 +5,8 @@ import { temporaryFolder } from '../support/folders.js';
 
 export const PERIOD_MS = 30_000;
 
+const RANGE = { power_min_W: 0, power_max_W: 2e6, flow_min_kg_s: 0, flow_max_kg_s: 10 };
+
 /** A unit with channels a, b, c and, by exception, e: as much of one as the daemon itself needs. */
 export function smallUnit(id = 'u'): UnitDefinition {
   return {
@@ -14,6 +16,8 @@ export function smallUnit(id = 'u'): UnitDefinition {
     stores: [],
     hours_at_W: [1e6],
     hours_every_s: 600,
+    machine: { auxiliary_running_W: 0, auxiliary_standing_W: 0 },
+    limits: { charge: RANGE, discharge: RANGE },
     watch: {
       data_age_s: { limit: 120, deadband: 0, on_delay_s: 0, off_delay_s: 0 },
       database_down: { on_delay_s: 1, off_delay_s: 1 },
