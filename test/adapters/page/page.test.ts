@@ -298,6 +298,12 @@ describe.skipIf(!chromium)('the page, in a real browser', { timeout: 30_000 }, (
     plant.step();
     const after = (await plant.hours('north', [1.4])).answers[0]!.energy_MWh_el.p50.toFixed(2);
     await expect.poll(() => field(page, 'energy-p50', p50).textContent()).toBe(after);
+    // A power that the machine does not have is answered with that word.
+    await page.fill('#power', '3.5');
+    await page.keyboard.press('Enter');
+    const told = page.locator('.asked [data-power="3.5"] .ends');
+    await told.waitFor();
+    expect(await told.textContent()).toMatch(/^limited: above its greatest power · ends: /);
   });
 
   it('says what is wrong with a power that is none, and what the server makes of it', async () => {

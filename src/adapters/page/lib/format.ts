@@ -87,6 +87,15 @@ export const END_WORDS = {
   empty: 'store empty',
 } as const;
 
+export const LIMIT_WORDS = {
+  start_up: 'it has to start first',
+  change_over: 'it has to turn first',
+  below_least_power: 'below its least power',
+  above_greatest_power: 'above its greatest power',
+  connection: 'the connection lets through less',
+  outage: 'an outage is planned',
+} as const;
+
 export const REASON_WORDS = {
   uniform: 'no front: the bed is uniform',
   no_half_crossing: 'no front: half the range is not crossed within the bed',

@@ -6,6 +6,7 @@ import type {
   StoreEstimate,
   TubeProfile,
 } from '../../../core/estimate.js';
+import type { LimitedAnswer } from '../../../core/plan/limitedBy.js';
 import type { WatchEvent } from '../../../core/watch/event.js';
 
 /** What the server sends, as far as the page reads it; a test holds it against the server's types. */
@@ -45,7 +46,7 @@ export type EstimateState = Omit<Estimate, 'stores' | 'dispatch'> & {
 export interface Dispatch {
   time: string;
   age_s: number | null;
-  answers: DispatchAnswer[];
+  answers: LimitedAnswer[];
 }
 
 export type Reading = Omit<SensorReading, 'value_K'> & { value_degC: number | null };
@@ -113,4 +114,4 @@ export interface Beat {
   units: { unit: string; age_s: number | null; stale: boolean }[];
 }
 
-export type { DispatchAnswer, Quality };
+export type { DispatchAnswer, LimitedAnswer, Quality };

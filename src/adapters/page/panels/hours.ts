@@ -1,9 +1,18 @@
 import { AnswerError, type Api } from '../lib/api.js';
 import { byId, h, s, setAttributes, setText, unitText } from '../lib/dom.js';
-import { ageText, clock, DASH, END_WORDS, fixed, hoursText, power } from '../lib/format.js';
+import {
+  ageText,
+  clock,
+  DASH,
+  END_WORDS,
+  fixed,
+  hoursText,
+  LIMIT_WORDS,
+  power,
+} from '../lib/format.js';
 import { ageNow, type PageModel } from '../lib/model.js';
 import { roundHours, typedPower } from '../lib/powers.js';
-import type { Dispatch, DispatchAnswer } from '../lib/wire.js';
+import type { Dispatch, LimitedAnswer } from '../lib/wire.js';
 
 const LEVELS = [
   { key: 'p90', label: 'firm, p90' },
@@ -27,7 +36,7 @@ function hoursBar() {
   );
   return {
     element,
-    update({ p90, p50, p10 }: DispatchAnswer['hours'], full_h: number): void {
+    update({ p90, p50, p10 }: LimitedAnswer['hours'], full_h: number): void {
       const share = (hours: number) => Math.max(0, Math.min(100, (100 * hours) / full_h));
       setAttributes(sure, { width: share(p90) });
       setAttributes(maybe, { x: share(p90), width: Math.max(0.4, share(p10) - share(p90)) });
@@ -62,10 +71,12 @@ function hoursRow() {
   );
   return {
     row,
-    update(answer: DispatchAnswer, full_h: number): void {
+    update(answer: LimitedAnswer, full_h: number): void {
       setAttributes(row, { 'data-power': answer.power_MW });
       setText(at, power(answer.power_MW));
-      setText(ends, `ends: ${END_WORDS[answer.ends_by]}`);
+      const { ends_by, limited_by } = answer;
+      const limit = limited_by === null ? '' : `limited: ${LIMIT_WORDS[limited_by]} · `;
+      setText(ends, `${limit}ends: ${END_WORDS[ends_by]}`);
       for (const { key, hours, energy } of levels) {
         setText(hours, hoursText(answer.hours[key]));
         setText(energy, fixed(answer.energy_MWh_el[key], 2));
@@ -80,7 +91,7 @@ type Row = ReturnType<typeof hoursRow>;
 /** A list of rows that grows and shrinks with its answers. */
 function rowList(list: HTMLElement) {
   const rows: Row[] = [];
-  return (answers: readonly DispatchAnswer[], full_h: number) => {
+  return (answers: readonly LimitedAnswer[], full_h: number) => {
     while (rows.length < answers.length) {
       const row = hoursRow();
       rows.push(row);
