@@ -55,7 +55,12 @@ function curveText(curve: CapabilityCurve): string[] {
     ...stores.map((id) => (point.stored_MWh_th[id] ?? Number.NaN).toFixed(2)),
   ]);
   const error = `largest error ${curve.largest_error_MW_el.toFixed(4)} MW_el over ${curve.steps} steps`;
-  const after = after_cycles > 0 ? `, of cycle ${after_cycles} from now` : '';
+  const after =
+    after_cycles === null
+      ? ' in a settled cycle (the present beds cannot be moved)'
+      : after_cycles > 0
+        ? `, of cycle ${after_cycles} from now`
+        : '';
   const beyond =
     beyond_MWh_el > 0
       ? [`Below rated power it gives ${beyond_MWh_el.toFixed(2)} MWh_el more past 0.`]

@@ -85,7 +85,7 @@ function mismatchLines(mismatch: Mismatch | null, reason: string | null): string
   );
   return [
     '',
-    `Discharging ${mismatch.power_MW_el} MW_el, each store with the other's rule left out:`,
+    `Discharging ${mismatch.power_MW_el} MW_el, and each store as if it alone set the end:`,
     table(['store', 'h p90', 'h p50', 'h p10', 'ends by'], hours),
     words,
     ...left,
@@ -102,6 +102,9 @@ export function balanceText(answer: AheadHead & Balance): string {
   return [
     headLine(answer),
     `Usual cycle: takes ${f2(usual.charge_MWh_el)} MWh_el at ${usual.charging_MW_el} MW_el (${from}), discharges ${usual.discharging_MW_el} MW_el to a rule.`,
+    ...(usual.locked
+      ? ['One store is full, the other empty: the present beds can neither charge nor discharge.']
+      : []),
     `From limit to limit it takes ${f2(usual.full_charge.energy_MWh_el)} MWh_el and gives ${f2(usual.full_discharge.energy_MWh_el)} MWh_el, round trip ${(100 * usual.round_trip).toFixed(1)} %.`,
     ...flushLines(answer),
     ...mismatchLines(answer.mismatch, answer.mismatch_reason),

@@ -28,6 +28,8 @@ export interface Balance {
     readonly full_charge: RunFigures;
     readonly full_discharge: RunFigures;
     readonly round_trip: number;
+    /** The present beds can neither be charged nor discharged: this cycle is that of the model. */
+    readonly locked: boolean;
   };
   readonly flush: FlushAnswer;
   readonly mismatch: Mismatch | null;
@@ -55,6 +57,7 @@ export function balanceOf(context: PlanContext, ask: BalanceAsk): Balance {
       full_charge: runFigures(usual.nextFull),
       full_discharge: runFigures(usual.nextEmpty),
       round_trip: usual.round_trip,
+      locked: usual.locked,
     },
     flush: flushOf(usual, ask.prices ?? null),
     mismatch,

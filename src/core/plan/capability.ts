@@ -17,6 +17,7 @@ import { nominalCeiling, type PowerLimit } from './greatest.js';
 import { type LimitRun, runToLimit } from './limitToLimit.js';
 import { createOutlook } from './outlook.js';
 import { fewestPoints, largestError } from './piecewise.js';
+import { settledFull } from './settledBeds.js';
 
 export interface CapabilityAsk {
   /** Largest error of the curves over rated power [-]; 0.01 where absent. */
@@ -42,9 +43,9 @@ export interface CapabilityCurve {
   readonly marched_at_MW_el: number;
   /**
    * 0: from the present beds; n: from the n-th cycle after, since the beds as they are now hardly
-   * reach anywhere.
+   * reach anywhere; null: from a settled cycle of the model, since these cannot be moved at all.
    */
-  readonly after_cycles: number;
+  readonly after_cycles: number | null;
   readonly points: CapabilityPoint[];
   /** Of the straight lines against every step of the marches. */
   readonly largest_error_MW_el: number;
@@ -93,6 +94,8 @@ const SETTLED = 0.005;
 const MOST_CYCLES = 4;
 /** Beds that reach this share of the last cycle's state of charge give the curve. */
 const ENOUGH = 0.5;
+/** Beds that reach less can neither be charged nor discharged: one store is full, the other empty. */
+const LEAST_REACH = 0.02;
 
 /**
  * Greatest power in both directions against state of charge.
@@ -102,7 +105,8 @@ const ENOUGH = 0.5;
  * cycle repeats itself. The first discharge from full to empty and the first charge from empty to
  * full give the curves, so that these have the shape of the present fronts; where the beds as they
  * are reach less than half of the state of charge of the last cycle, too little to have a shape, the
- * first that reach so far (`after_cycles`). At every step the greatest power is that of `greatestPower`. State of charge along
+ * first that reach so far (`after_cycles`); where they cannot be moved at all, those of a settled
+ * cycle of the model (`settledFull`). At every step the greatest power is that of `greatestPower`. State of charge along
  * a discharge is the time left at rated power; along a charge it comes from discharges rolled out on
  * the way. At 0 a discharge stops and at the last point a charge does.
  *
@@ -131,23 +135,18 @@ export function capabilityOf(context: PlanContext, ask: CapabilityAsk): Capabili
     runToLimit(model, from, 'charge', charging_W, most, options);
   const charges = refused.charge === null;
   const full = charges ? up(now) : null;
-  const downs = [down(full?.end ?? now)];
-  const ups: LimitRun[] = [];
-  let settled = false;
-  while (charges && downs.length <= MOST_CYCLES) {
-    const before = downs.at(-1) as Path;
-    ups.push(up(before.run.end));
-    downs.push(down((ups.at(-1) as LimitRun).end));
-    const change = (downs.at(-1) as Path).run.hours - before.run.hours;
-    settled = Math.abs(change) < SETTLED * unit.rated_hours;
-    if (settled) break;
-  }
+  let cycles = cyclesFrom(down(full?.end ?? now), charges ? up : null, down, unit.rated_hours);
+  const stuck = charges && reachOf(cycles.downs.at(-1)) < LEAST_REACH;
+  const instead = stuck ? settledFull(model) : null;
+  if (instead !== null) cycles = cyclesFrom(down(instead), up, down, unit.rated_hours);
+  const { downs, ups, settled } = cycles;
   const tolerance_W = tolerance * unit.rated_power_W;
   const curve = (direction: Direction): CapabilityCurve => {
     // A charge reaches as far as the discharge after it begins.
     const after = reaching(direction === 'charge' ? downs.slice(1) : downs);
     const power_W = direction === 'charge' ? charging_W : unit.rated_power_W;
-    const given = { power_W, tolerance_W, after, refused: refused[direction] };
+    const after_cycles = instead === null ? after : null;
+    const given = { power_W, tolerance_W, after_cycles, refused: refused[direction] };
     if (given.refused !== null) return drawn(march, direction, undefined, given);
     const from = downs[after] as Path;
     const path = direction === 'charge' ? pathOf(march, from.run.end, direction, power_W) : from;
@@ -156,7 +155,7 @@ export function capabilityOf(context: PlanContext, ask: CapabilityAsk): Capabili
   const lastUp = ups.at(-1);
   return {
     state_of_charge: chargeOf(march, now),
-    full_from_now: downs[0]?.samples.at(-1)?.soc ?? 0,
+    full_from_now: chargeOf(march, full?.end ?? now),
     rated_power_MW_el: unit.rated_power_W / 1e6,
     rated_hours: unit.rated_hours,
     discharge: curve('discharge'),
@@ -164,20 +163,43 @@ export function capabilityOf(context: PlanContext, ask: CapabilityAsk): Capabili
     cycle:
       lastUp === undefined || refused.discharge !== null
         ? null
-        : figures(march, lastUp, downs.slice(-2) as [Path, Path], {
-            cycles: ups.length,
-            settled,
-          }),
+        : figures(march, lastUp, downs.slice(-2) as [Path, Path], { cycles: ups.length, settled }),
   };
+}
+
+/** Discharges and the charges between them, from the first on until the cycle repeats itself. */
+function cyclesFrom(
+  first: Path,
+  up: ((from: BedsAhead) => LimitRun) | null,
+  down: (from: BedsAhead) => Path,
+  rated_hours: number,
+): { readonly downs: Path[]; readonly ups: LimitRun[]; readonly settled: boolean } {
+  const downs = [first];
+  const ups: LimitRun[] = [];
+  while (up !== null && downs.length <= MOST_CYCLES) {
+    const before = downs.at(-1) as Path;
+    const charge = up(before.run.end);
+    const next = down(charge.end);
+    ups.push(charge);
+    downs.push(next);
+    if (Math.abs(next.run.hours - before.run.hours) < SETTLED * rated_hours) {
+      return { downs, ups, settled: true };
+    }
+  }
+  return { downs, ups, settled: false };
+}
+
+/** State of charge that a path reaches. */
+function reachOf(path: Path | undefined): number {
+  return path?.samples.at(-1)?.soc ?? 0;
 }
 
 /** The first path that reaches far enough against the last; 0 of none. */
 function reaching(paths: readonly Path[]): number {
-  const reach = (path: Path | undefined): number => path?.samples.at(-1)?.soc ?? 0;
-  const settled = reach(paths.at(-1));
+  const settled = reachOf(paths.at(-1));
   return Math.max(
     0,
-    paths.findIndex((path) => reach(path) >= ENOUGH * settled),
+    paths.findIndex((path) => reachOf(path) >= ENOUGH * settled),
   );
 }
 
@@ -196,7 +218,7 @@ function drawn(
   given: {
     readonly power_W: number;
     readonly tolerance_W: number;
-    readonly after: number;
+    readonly after_cycles: number | null;
     readonly refused: string | null;
   },
 ): CapabilityCurve {
@@ -207,7 +229,7 @@ function drawn(
   return {
     direction,
     marched_at_MW_el: given.power_W / 1e6,
-    after_cycles: given.after,
+    after_cycles: given.after_cycles,
     points: kept.map((i): CapabilityPoint => {
       const sample = samples[i] as PathSample;
       return {

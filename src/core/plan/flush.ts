@@ -76,7 +76,7 @@ interface Programme {
 export function flushOf(usual: Usual, prices: Prices | null): FlushAnswer {
   const first = usualCharge(usual, usual.now, usual.firstCharge_J);
   const base = programme(usual, [first, toEmpty(usual, first.end)]);
-  const round_trip = roundTripOf(base);
+  const round_trip = roundTripOf(usual, base);
   return {
     as_usual: {
       runs: base.first.map(runFigures),
@@ -84,8 +84,14 @@ export function flushOf(usual: Usual, prices: Prices | null): FlushAnswer {
       round_trip,
     },
     ways: [
-      weighed('full_charge', base, programme(usual, [usual.toFull, usual.toEmpty]), prices),
-      weighed('full_discharge', base, programme(usual, [usual.nowEmpty]), prices),
+      weighed(
+        'full_charge',
+        round_trip,
+        base,
+        programme(usual, [usual.toFull, usual.toEmpty]),
+        prices,
+      ),
+      weighed('full_discharge', round_trip, base, programme(usual, [usual.nowEmpty]), prices),
     ],
   };
 }
@@ -114,13 +120,19 @@ function programme(usual: Usual, first: readonly LimitRun[]): Programme {
   return { first, following };
 }
 
-function roundTripOf({ following }: Programme): number {
+/** Of the last cycle marched; where beds cannot be moved, that of the usual cycle. */
+function roundTripOf(usual: Usual, { following }: Programme): number {
   const { charge, discharge } = following.at(-1) as Programme['following'][number];
-  return discharge.energy_J / charge.energy_J;
+  return usual.locked ? usual.round_trip : discharge.energy_J / charge.energy_J;
 }
 
-function weighed(way: FlushWay, base: Programme, own: Programme, prices: Prices | null): Flush {
-  const eta = roundTripOf(base);
+function weighed(
+  way: FlushWay,
+  eta: number,
+  base: Programme,
+  own: Programme,
+  prices: Prices | null,
+): Flush {
   const sum = (runs: readonly LimitRun[], direction: LimitRun['direction']): number =>
     runs.reduce((all, run) => all + (run.direction === direction ? run.energy_J : 0), 0) /
     J_PER_MWH;
@@ -154,7 +166,8 @@ function weighed(way: FlushWay, base: Programme, own: Programme, prices: Prices 
   function moneyOf({ price_per_MWh_el: sold, charging_price_per_MWh_el: bought = sold }: Prices) {
     const { charge, discharge } = base.following.at(-1) as Programme['following'][number];
     const earns = (discharge.energy_J * sold - charge.energy_J * bought) / J_PER_MWH;
-    const perHour = Math.max(0, earns) / (charge.hours + discharge.hours);
+    const hoursOf = charge.hours + discharge.hours;
+    const perHour = hoursOf > 0 ? Math.max(0, earns) / hoursOf : 0;
     return {
       energy_cost: takes_MWh_el * bought - gives_MWh_el * sold,
       lost_time_cost: Math.max(0, takes_hours) * perHour,

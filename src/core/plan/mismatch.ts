@@ -1,7 +1,6 @@
 import type { StoreKind } from '../definitions.js';
-import { type HoursAlone, hoursOfEach, mismatchOf, WITHOUT } from './alone.js';
+import { type HoursAlone, hoursOfEach, mismatchOf, storeAlone } from './alone.js';
 import { contentOf } from './content.js';
-import { withoutRules } from './limitToLimit.js';
 import { type Trim, trimsOf } from './trim.js';
 import { toEmpty, type Usual, usualCharge } from './usual.js';
 
@@ -27,7 +26,7 @@ export interface Drift {
 export interface Mismatch {
   readonly power_MW_el: number;
   readonly together: HoursAlone;
-  /** Each store where the other's rule is left out, by store. */
+  /** Each store as if it alone set the end, by store; see `storeAlone`. */
   readonly alone: Record<string, HoursAlone>;
   /** Hot less cold, by the best march: above 0 the hot store holds more. */
   readonly mismatch_h: number;
@@ -44,9 +43,9 @@ const MATCH_H = 1 / 60;
 /**
  * How the two stores of a unit match, and what that costs.
  *
- * A discharge is marched from now to the first store's rule, and on to the other's with the first's
- * left out: what the other gives up in between was stranded. It is worth what a discharge of
- * matched stores gives per heat of that store. The drift is that of two usual cycles from now.
+ * A discharge is marched from now to the first store's rule, and one of the store that holds more as
+ * if it were alone (`storeAlone`) to its own: what that one holds less at its end was stranded. It is
+ * worth what a discharge of matched stores gives per heat of that store. The drift is that of two usual cycles from now.
  *
  * @returns null for a unit of one store
  */
@@ -73,8 +72,7 @@ export function mismatchAnswer(usual: Usual): Mismatch | null {
   function strandedFrom(of: Usual, beds: typeof now, kind: StoreKind): Stranded {
     const s = model.stores.findIndex((own) => own.store.kind === kind);
     const first = beds === now ? of.nowEmpty : toEmpty(of, beds);
-    const other = withoutRules(model, WITHOUT[kind === 'hot' ? 'cold' : 'hot']);
-    const own = toEmpty(of, beds, other);
+    const own = toEmpty(of, beds, storeAlone(model, kind));
     const remains = contentOf(model, first.end, of.capacity)[s] as number;
     const given = Math.max(0, remains - (contentOf(model, own.end, of.capacity)[s] as number));
     return {

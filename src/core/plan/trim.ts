@@ -35,6 +35,11 @@ const ZERO_DEGC_K = 273.15;
 const DAY_S = 86_400;
 /** Longest stand that is of any use [s]. */
 const MOST_STAND_S = 7 * DAY_S;
+/** Stand from which the rate of change is taken [s]. */
+const PROBE_S = DAY_S / 4;
+/** A mismatch is met within this share of it. */
+const CLOSE = 0.1;
+const HALVINGS = 6;
 /** A stand that changes the mismatch by less in a day does nothing [h]. */
 const LEAST_CHANGE_H = 1e-3;
 
@@ -132,27 +137,45 @@ function runOn(usual: Usual): Trim {
 
 function stand(usual: Usual, before: number): Trim {
   const { model, now, options, capacity } = usual;
-  const change = mismatchOf(usual, standFor(model, now, DAY_S, options)) - before;
-  if (Math.abs(change) < LEAST_CHANGE_H || change * before >= 0) {
-    const way = change * before > 0 ? 'widens' : 'does not change';
-    return none('stand', before, `standing ${way} the mismatch (${change.toFixed(3)} h a day)`);
+  const standing = (time_s: number) => {
+    const beds = standFor(model, now, time_s, options);
+    return { time_s, beds, mismatch_h: mismatchOf(usual, beds) };
+  };
+  const rate = (standing(PROBE_S).mismatch_h - before) * (DAY_S / PROBE_S);
+  if (Math.abs(rate) < LEAST_CHANGE_H || rate * before >= 0) {
+    const does = rate * before > 0 ? 'widens' : 'does not change';
+    return none('stand', before, `standing ${does} the mismatch (${rate.toFixed(3)} h a day)`);
   }
-  const time_s = (Math.abs(before) / Math.abs(change)) * DAY_S;
-  if (time_s > MOST_STAND_S) {
-    const days = (time_s / DAY_S).toFixed(1);
-    return none('stand', before, `it would take ${days} days (${change.toFixed(3)} h a day)`);
+  const needed_s = (Math.abs(before) / Math.abs(rate)) * DAY_S;
+  if (needed_s > MOST_STAND_S) {
+    const days = (needed_s / DAY_S).toFixed(1);
+    return none('stand', before, `it would take ${days} days (${rate.toFixed(3)} h a day)`);
   }
-  const after = standFor(model, now, time_s, options);
+  let after = standing(needed_s);
+  // Where the mismatch turns on the way, the turn is found by halving.
+  let early_s = 0;
+  let late_s = needed_s;
+  for (let n = 0; n < HALVINGS && Math.abs(after.mismatch_h) > CLOSE * Math.abs(before); n++) {
+    if (after.mismatch_h * before > 0 && n === 0) break;
+    if (after.mismatch_h * before > 0) early_s = after.time_s;
+    else late_s = after.time_s;
+    after = standing((early_s + late_s) / 2);
+  }
+  const { time_s, beds, mismatch_h } = after;
+  if (Math.abs(mismatch_h) > Math.abs(before) / 2) {
+    const [h, to] = [(time_s / 3600).toFixed(1), mismatch_h.toFixed(2)];
+    return none('stand', before, `no stand meets it: after ${h} h it is ${to} h`);
+  }
   const held = contentOf(model, now, capacity);
-  const left = contentOf(model, after, capacity);
+  const left = contentOf(model, beds, capacity);
   const takes = (model.machine.auxiliary_standing_W * time_s) / J_PER_MWH;
-  const gives = (toEmpty(usual, after).energy_J - usual.nowEmpty.energy_J) / J_PER_MWH;
+  const gives = (toEmpty(usual, beds).energy_J - usual.nowEmpty.energy_J) / J_PER_MWH;
   return {
     way: 'stand',
     reason: null,
     hours: time_s / 3600,
     mismatch_before_h: before,
-    mismatch_after_h: mismatchOf(usual, after),
+    mismatch_after_h: mismatch_h,
     takes_MWh_el: takes,
     gives_MWh_el: gives,
     cost_MWh_el: takes - gives,

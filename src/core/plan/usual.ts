@@ -10,6 +10,7 @@ import type { MarchOptions } from './episode.js';
 import { nominalCeiling } from './greatest.js';
 import { type LimitRun, runToLimit } from './limitToLimit.js';
 import { createOutlook } from './outlook.js';
+import { settledFull } from './settledBeds.js';
 
 /** How the unit usually runs, for what is asked about cycles to come. */
 export interface UsualAsk {
@@ -20,6 +21,9 @@ export interface UsualAsk {
 }
 
 export const USUAL_CHARGES = ['asked', 'rated_energy'] as const;
+
+/** Beds that give less of the rated energy when full can neither be charged nor discharged. */
+const LEAST_SHARE = 0.02;
 
 /** Everything that marches of usual cycles need. */
 export interface Usual {
@@ -40,6 +44,8 @@ export interface Usual {
   readonly round_trip: number;
   /** Electricity given over what each store gives, in its discharge [-]. */
   readonly perStore: readonly number[];
+  /** True where the present beds can neither be charged nor discharged. */
+  readonly locked: boolean;
   /** From now to full, from there to empty; from there to full and to empty once more. */
   readonly toFull: LimitRun;
   readonly toEmpty: LimitRun;
@@ -53,7 +59,8 @@ export interface Usual {
  * The usual cycle: a charge at the greatest power that takes `charge_J` or as much as its rules
  * allow, and a discharge at constant power to the rule that ends it. What it is worth is taken from a
  * cycle from limit to limit that follows on the present beds. The first charge from now takes less,
- * by what can be given already over the round trip.
+ * by what can be given already over the round trip. Of beds that cannot be moved, the cycle that tells
+ * its worth follows on those of a settled cycle instead (`settledFull`).
  *
  * @throws RangeError for a charge or a power that is not above 0 or beyond the machine, and where the
  *   unit cannot charge at all
@@ -92,12 +99,19 @@ export function usualCycle(context: PlanContext, ask: UsualAsk): Usual {
     runToLimit(model, from, 'discharge', power_W, { time_s: longest_s(model, power_W) }, options);
   const toFull = up(now);
   const toEmpty = down(toFull.end);
-  const nextFull = up(toEmpty.end);
+  const rated_J = unit.rated_power_W * unit.rated_hours * 3600;
+  const own = up(toEmpty.end);
+  // One store full and the other empty: what a cycle is worth is then that of the model's.
+  const locked = down(own.end).energy_J < LEAST_SHARE * rated_J;
+  const instead = locked ? settledFull(model) : null;
+  if (locked && instead === null) {
+    throw new RangeError(`power_W = ${power_W}: expected a power that a full unit can give`);
+  }
+  const nextFull = instead === null ? own : up(down(instead).end);
   const nextEmpty = down(nextFull.end);
   const round_trip = nextEmpty.energy_J / nextFull.energy_J;
   const full = contentOf(model, nextFull.end, capacity);
   const empty = contentOf(model, nextEmpty.end, capacity);
-  const rated_J = unit.rated_power_W * unit.rated_hours * 3600;
   const charge_J = ask.charge_J ?? rated_J / round_trip;
   const nowEmpty = down(now);
   return {
@@ -114,6 +128,7 @@ export function usualCycle(context: PlanContext, ask: UsualAsk): Usual {
     charge_from: ask.charge_J === undefined ? 'rated_energy' : 'asked',
     round_trip,
     perStore: full.map((value, s) => nextEmpty.energy_J / 3.6e9 / (value - (empty[s] as number))),
+    locked,
     toFull,
     toEmpty,
     nextFull,

@@ -156,6 +156,40 @@ describe('the capability of a unit that something keeps from running', () => {
     expect(discharge.points.some((point) => point.limited_by === 'pressure_drop')).toBe(true);
   });
 
+  it('is that of a settled cycle where one store is full and the other empty', () => {
+    const answer = capabilityOf(contextOf(cycle, { hot: 2, cold: -1 }), {});
+    expect([answer.state_of_charge, answer.full_from_now]).toEqual([0, 0]);
+    for (const curve of [answer.discharge, answer.charge]) {
+      expect(curve.after_cycles).toBeNull();
+      expect(curve.points.at(-1)?.state_of_charge).toBeGreaterThan(0.3);
+    }
+    expect(answer.cycle?.round_trip).toBeGreaterThan(0.3);
+  });
+
+  it.each([
+    ['empty', { hot: -1, cold: -1 }],
+    ['full', { hot: 2, cold: 2 }],
+    ['all front', { hot: 0.5, cold: 0.5, width: 0.6 }],
+  ])('has sound points from stores that are %s', (_, fronts) => {
+    for (const unit of [cycle, engineUnit()]) {
+      const { charge, discharge } = capabilityOf(contextOf(unit, fronts), {});
+      for (const { direction, points } of [charge, discharge]) {
+        expect(points.length).toBeGreaterThan(1);
+        points.forEach((point, i) => {
+          const before = points[i - 1];
+          if (before !== undefined) {
+            expect(point.state_of_charge).toBeGreaterThan(before.state_of_charge);
+            const more = point.energy_MWh_el - before.energy_MWh_el;
+            if (direction === 'discharge') expect(more).toBeGreaterThan(0);
+            else expect(more).toBeLessThan(0);
+          }
+          expect(point.power_MW_el).toBeGreaterThan(0);
+          expect(point.power_MW_el).toBeLessThanOrEqual(unit.limits[direction].power_max_W / 1e6);
+        });
+      }
+    }
+  });
+
   it('refuses a tolerance that is none', () => {
     expect(() => capabilityOf(contextOf(cycle, FRONTS), { tolerance: 0.5 })).toThrow(
       /tolerance = 0.5: expected 0.0005 to 0.2 of rated power/,

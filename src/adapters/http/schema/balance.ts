@@ -78,7 +78,9 @@ const flushSchema = z.object({
 const mismatchSchema = z.object({
   power_MW_el: z.number(),
   together: hoursAlone,
-  alone: z.record(z.string(), hoursAlone).describe("Each store, the other's rule left out"),
+  alone: z
+    .record(z.string(), hoursAlone)
+    .describe("Each store as if alone: the other's rule left out, its gas as if it stayed charged"),
   mismatch_h: z
     .number()
     .describe('Hot less cold, each run to its own rule: above 0 the hot store holds more'),
@@ -123,6 +125,9 @@ export const balanceSchema = z.object({
     full_charge: runSchema,
     full_discharge: runSchema,
     round_trip: z.number(),
+    locked: z
+      .boolean()
+      .describe("Present beds can neither be charged nor discharged: this cycle is the model's"),
   }),
   flush: flushSchema,
   mismatch: mismatchSchema.nullable(),

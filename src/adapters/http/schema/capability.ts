@@ -25,7 +25,10 @@ const curveSchema = z.object({
   marched_at_MW_el: z.number().describe('Power that the beds were marched with'),
   after_cycles: z
     .number()
-    .describe('0: from the present beds; n: these hardly reach anywhere, so from the n-th cycle'),
+    .nullable()
+    .describe(
+      '0: from the present beds; n: these hardly reach anywhere, so from the n-th cycle; null: they cannot be moved, so from a settled cycle of the model',
+    ),
   points: z
     .array(
       z.object({
