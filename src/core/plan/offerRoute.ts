@@ -101,7 +101,7 @@ function routeOf(
       to_s <= begins_s + 1e-6 &&
       from_s >= lastRunBefore(command.pieces, begins_s),
   );
-  const drawn = (from: number, to: number): number => -energyBetween(leads, from, to);
+  const drawn = (from: number, to: number): number => 0 - energyBetween(leads, from, to);
   return {
     ...{ power_W, start_s, begins_s, ends_s, closes_s },
     ending: after === 'connection' || after === 'outage' ? after : 'horizon',

@@ -206,6 +206,19 @@ describe('an offer after a plan', () => {
     expect(after.plan_holds).toBe(1);
   });
 
+  it('goes on with a run of the plan that ends at its start, as if it were one', () => {
+    const whole = only(offersOf(full, ask({ starts_ms: [HOUR_MS] })));
+    const rest = only(offersOf(full, ask({ starts_ms: [4 * HOUR_MS], legs })));
+    const sigma = (whole.hours.p10 - whole.hours.p90) / 2.56;
+    expect(rest.begins_s).toBe(rest.start_s);
+    expect(rest.start_up_MWh_el).toEqual({ before_start: 0, after_start: 0 });
+    for (const key of ['p90', 'p50', 'p10'] as const) {
+      // One step more, cut at the edge: its error is of second order.
+      expect(Math.abs(rest.hours[key] + 3 - whole.hours[key])).toBeLessThan(0.02 * sigma);
+    }
+    expect(rest.blocks[0]!.most_MWh_el).toBeCloseTo(0.06 / 4, 9);
+  });
+
   it('has blocks alone and jointly the same without a plan, and not after one that may fail', () => {
     const short = contextOf({ hot: 0.5, cold: 0.5 });
     const alone = only(offersOf(short, ask()));
