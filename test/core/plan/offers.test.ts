@@ -10,6 +10,7 @@ import { firstBreaks, spreadOf } from '../../../src/core/plan/spread.js';
 import { hoursAt } from '../../../src/core/unit.js';
 import { watchedUnit } from '../dispatch/fullUnit.js';
 import { contextOf, H, HOUR_MS, unit } from './offerUnit.js';
+import { engineUnit } from './units.js';
 
 const LEAST = unit.limits.discharge.power_min_W;
 const MOST = unit.limits.discharge.power_max_W;
@@ -49,6 +50,22 @@ describe('an offer table', () => {
       expect(Math.abs(offer.hours[key] - hours[key])).toBeLessThan(0.12 * sigma);
       expect(offer.energy_MWh_el[key]).toBeCloseTo(offer.hours[key] * 0.06, 9);
     }
+  });
+
+  it('works the same on one hot store with an engine', () => {
+    const engine = engineUnit();
+    const context = contextOf({ hot: 0.8, cold: 0.8 }, engine);
+    const powers_W = [15e3, 20e3, 30e3, 40e3];
+    const offers = offersOf(context, ask({ powers_W, starts_ms: [900_000] }));
+    const state = watchedUnit(engine, { hot: 0.8, cold: 0.8 }, 3);
+    hoursAt(engine, state, powers_W).forEach(({ hours, ends_by }, i) => {
+      const offer = offers[i] as Offer;
+      const sigma = (hours.p10 - hours.p90) / 2.56;
+      // As above: points of their own, and what goes between powers.
+      expect(Math.abs(offer.hours.p50 - hours.p50)).toBeLessThan(0.15 * sigma);
+      expect(Math.abs(offer.hours.p90 - hours.p90)).toBeLessThan(0.2 * sigma);
+      expect(offer.ends_by[ends_by]).toBeGreaterThan(0.5);
+    });
   });
 
   it('never gives more hours at more power, between the least and the greatest', () => {
