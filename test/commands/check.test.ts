@@ -45,6 +45,9 @@ describe('rockhour check', () => {
       /^Front width \(sigma\) by then +[\d. ]+ {2}m$/m,
       /^Thermocouples per front +/m,
       /^Discharge: .* the rated [\d.]+ h\./m,
+      /^Command to power, warm +[\d.]+ +[\d.]+ {2}min$/m,
+      /^Connected for that power +[\d.-]+ +[\d.-]+ {2}h\/d$/m,
+      /^Limits that are not there\n(?: {2}\S.*\n {4}instead: .*\n(?: {4,}.*\n)*)+/m,
     ]) {
       expect(out).toMatch(row);
     }
@@ -61,6 +64,13 @@ describe('rockhour check', () => {
     const { out } = await check('--config', `${CONFIG_FOLDER}demo.yaml`, '--json');
     const answer = JSON.parse(out);
     expect(answer).toMatchObject({ sound: true, units: [{ id: 'vellmoor', rated_hours_h: 6 }] });
+    expect(answer.units[0].limits.discharge).toMatchObject({
+      from_warm_min: 12,
+      connected_h_d: 24,
+    });
+    expect(answer.units[0].missing_limits.map((m: { limit: string }) => m.limit)).toEqual([
+      'outages',
+    ]);
     expect(answer.units[0].stores.map((s: { id: string }) => s.id)).toEqual(['hot', 'cold']);
   });
 

@@ -60,7 +60,7 @@ function capNotes(unit: UnitDefinition, machine: Machine): string[] {
 }
 
 /** A start that draws more than a window lets in cannot be made while that is open. */
-function startNotes(unit: UnitDefinition): string[] {
+export function startNotes(unit: UnitDefinition): string[] {
   const { operation, connection } = unit.limits;
   if (operation === undefined || connection === undefined) return [];
   return (['warm', 'cold'] as const).flatMap((kind) => {
@@ -69,8 +69,10 @@ function startNotes(unit: UnitDefinition): string[] {
     const narrow = connection.windows.filter((window) => window.import_max_W < draw_W);
     if (narrow.length === 0) return [];
     const least = Math.min(...narrow.map((window) => window.import_max_W));
+    const where =
+      narrow.length === 1 ? 'a window of the connection lets' : 'windows of the connection let';
     return [
-      `a ${kind} start draws ${(draw_W / 1e6).toFixed(3)} MW_el, more than ${narrow.length === 1 ? 'a window' : 'some windows'} of the connection let in (${(least / 1e6).toFixed(3)} MW_el)`,
+      `a ${kind} start draws ${(draw_W / 1e6).toFixed(3)} MW_el, more than ${where} in (${(least / 1e6).toFixed(3)} MW_el)`,
     ];
   });
 }
