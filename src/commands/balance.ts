@@ -1,4 +1,5 @@
 import type { Command } from 'commander';
+import type { UnitDefinition } from '../core/definitions.js';
 import type { Balance, BalanceAsk } from '../core/plan/balance.js';
 import { RockhourError } from '../errors.js';
 import {
@@ -29,6 +30,16 @@ function numeral(option: string, text: string | undefined, least: 'above 0' | '0
   );
 }
 
+/** @throws RockhourError USAGE for a power that the unit does not discharge at */
+function checkPower({ limits }: UnitDefinition, power_MW: number | undefined): void {
+  const [least, most] = [limits.discharge.power_min_W / 1e6, limits.discharge.power_max_W / 1e6];
+  if (power_MW === undefined || (power_MW >= least && power_MW <= most)) return;
+  throw new RockhourError(
+    'USAGE',
+    `--power is ${power_MW}; expected ${least} to ${most} MW, as the unit discharges`,
+  );
+}
+
 async function answerOf(options: BalanceOptions): Promise<AheadHead & Balance> {
   const power_MW = numeral('--power', options.power, 'above 0');
   const charge_MWh_el = numeral('--charge', options.charge, 'above 0');
@@ -47,6 +58,7 @@ async function answerOf(options: BalanceOptions): Promise<AheadHead & Balance> {
     return (await askAhead(options, 'balance', query)) as AheadHead & Balance;
   }
   const recorded = await stateFromRecording(options);
+  checkPower(recorded.unit, power_MW);
   const ask: BalanceAsk = {
     ...(power_MW === undefined ? {} : { power_W: power_MW * 1e6 }),
     ...(charge_MWh_el === undefined ? {} : { charge_J: charge_MWh_el * 3.6e9 }),

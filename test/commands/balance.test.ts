@@ -64,6 +64,9 @@ describe('rockhour headroom, capability and balance, from a recording of one sto
       '--tolerance is "1"; expected a share of rated power from 0.0005 to 0.2',
     );
     expect(code).toBe(2);
+    const beyond = await rockhour(['balance', ...from, '--power', '5']);
+    expect(beyond.stderr).toContain('--power is 5; expected 0.2 to 0.7 MW, as the unit discharges');
+    expect(beyond.code).toBe(2);
   });
 });
 

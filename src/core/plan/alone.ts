@@ -5,6 +5,7 @@ import type { EndCause, Quantiles } from '../estimate.js';
 import type { StoreTemperatures } from '../machine/machine.js';
 import type { UnitModel } from '../unitModel.js';
 import type { BedsAhead } from './bedsAhead.js';
+import type { LimitRun } from './limitToLimit.js';
 import { toEmpty, type Usual } from './usual.js';
 
 /** Rules of a discharge that leave one kind of store out. */
@@ -64,6 +65,12 @@ export function storeAlone<T extends Pick<UnitModel, 'unit' | 'machine'>>(
   };
 }
 
+/** Each store run to its own rule alone. */
+export function runAlone(usual: Usual, beds: BedsAhead): Record<StoreKind, LimitRun> {
+  const run = (kind: StoreKind): LimitRun => toEmpty(usual, beds, storeAlone(usual.model, kind));
+  return { hot: run('hot'), cold: run('cold') };
+}
+
 /**
  * Mismatch of the two stores in beds as they are [h]: how long the hot one could go on alone less how
  * long the cold one could, with less power where the greatest flow gives less. Above 0 the hot one
@@ -71,7 +78,9 @@ export function storeAlone<T extends Pick<UnitModel, 'unit' | 'machine'>>(
  * as one flow empties both.
  */
 export function mismatchOf(usual: Usual, beds: BedsAhead): number {
-  const hours = (kind: StoreKind): number =>
-    toEmpty(usual, beds, storeAlone(usual.model, kind)).hours;
-  return hours('hot') - hours('cold');
+  return mismatchBetween(runAlone(usual, beds));
+}
+
+export function mismatchBetween({ hot, cold }: Record<StoreKind, LimitRun>): number {
+  return hot.hours - cold.hours;
 }

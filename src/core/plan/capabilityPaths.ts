@@ -6,7 +6,7 @@ import { contentOf } from './content.js';
 import { energyBetween } from './course.js';
 import type { MarchOptions } from './episode.js';
 import { type GreatestPower, greatestPower, nominalCeiling } from './greatest.js';
-import { firstBreak_s, type LimitRun, type Moment, runToLimit } from './limitToLimit.js';
+import { firstBreak_s, type LimitRun, type Moment, watchToLimit } from './limitToLimit.js';
 import { type CurvePoint, valueAt } from './piecewise.js';
 
 /** One moment of a march from limit to limit. */
@@ -62,7 +62,7 @@ export function pathOf(
 ): Path {
   const { model, options, capacity } = march;
   const most = { time_s: longest_s(model, power_W) };
-  const { moments, ...run } = runToLimit(model, from, direction, power_W, most, options);
+  const { moments, ...run } = watchToLimit(model, from, direction, power_W, most, options);
   const zero_h = direction === 'discharge' ? Math.min(run.first_h, run.hours) : run.hours;
   const charge = direction === 'discharge' ? downwards(march, run) : upwards(march, moments);
   const greatest = greatestAlong(model, moments, direction);

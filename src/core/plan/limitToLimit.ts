@@ -40,6 +40,8 @@ export interface Enough {
 
 /** Longest step of beds that stand [s]. */
 const STAND_STEP_S = 900;
+/** A rule breaks between two steps, seen a step later at most, or at the very start of a run. */
+const LAST_MOMENTS = 12;
 /** Rules that stop a run by themselves; the greatest flow derates it first. */
 const STOPPING: readonly { readonly rule: number; readonly cause: EndCause }[] = [
   { rule: 0, cause: 'hot_outlet' },
@@ -73,7 +75,6 @@ export interface Moment {
  * of a run.
  *
  * @param power_W net at the connection point, above 0
- * @returns the run, and its moments from start to end
  */
 export function runToLimit(
   model: AheadModel,
@@ -81,8 +82,31 @@ export function runToLimit(
   direction: Direction,
   power_W: number,
   enough: Enough,
-  { step_s, works }: MarchOptions,
+  options: MarchOptions,
+): LimitRun {
+  const keep = enough.energy_J === undefined ? LAST_MOMENTS : Number.POSITIVE_INFINITY;
+  return march(model, from, direction, power_W, enough, options, keep).run;
+}
+
+/** The same with all its moments, from start to end. */
+export function watchToLimit(
+  ...[model, from, direction, power_W, enough, options]: Parameters<typeof runToLimit>
 ): LimitRun & { readonly moments: readonly Moment[] } {
+  const all = Number.POSITIVE_INFINITY;
+  const { run, moments } = march(model, from, direction, power_W, enough, options, all);
+  return { ...run, moments };
+}
+
+/** @param keep so many of the last moments are kept on the way */
+function march(
+  model: AheadModel,
+  from: BedsAhead,
+  direction: Direction,
+  power_W: number,
+  enough: Enough,
+  { step_s, works }: MarchOptions,
+  keep: number,
+): { run: LimitRun; moments: Moment[] } {
   if (!(power_W > 0)) throw new RangeError(`power_W = ${power_W}: expected above 0`);
   const start = copyAhead(from);
   model.stores.forEach((store, i) => {
@@ -96,7 +120,11 @@ export function runToLimit(
     [pieceOf(direction, power_W, enough.time_s)],
     {
       ...options,
-      each: (t_s, beds, flow_kg_s) => seen.push({ t_s, flow_kg_s, beds: copyAhead(beds) }),
+      each: (t_s, beds, flow_kg_s) => {
+        seen.push({ t_s, flow_kg_s, beds: copyAhead(beds) });
+        // The first stays: a run that its rule does not let begin ends there.
+        if (seen.length > keep) seen.splice(1, 1);
+      },
     },
   );
   const stop = episode.stopped_s ?? enough.time_s;
@@ -112,7 +140,7 @@ export function runToLimit(
     stepAhead(model, beds, direction, flow_kg_s, inlets, until - last.t_s, works);
     moments.push({ t_s: until, flow_kg_s, beds });
   }
-  return {
+  const run = {
     direction,
     hours: until / 3600,
     energy_J: Math.abs(energyBetween(delivered, 0, until)),
@@ -120,8 +148,8 @@ export function runToLimit(
     first_h: episode.first_s / 3600,
     delivered,
     end: (moments[moments.length - 1] as Moment).beds,
-    moments,
   };
+  return { run, moments };
 }
 
 /**

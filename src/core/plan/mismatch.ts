@@ -1,6 +1,7 @@
 import type { StoreKind } from '../definitions.js';
-import { type HoursAlone, hoursOfEach, mismatchOf, storeAlone } from './alone.js';
+import { type HoursAlone, hoursOfEach, mismatchBetween, runAlone } from './alone.js';
 import { contentOf } from './content.js';
+import type { LimitRun } from './limitToLimit.js';
 import { type Trim, trimsOf } from './trim.js';
 import { toEmpty, type Usual, usualCharge } from './usual.js';
 
@@ -19,7 +20,7 @@ export interface Drift {
   /** Mismatch after the usual charge of each of two equal cycles [h]. */
   readonly after_charge_h: number[];
   readonly per_cycle_h: number;
-  /** Of what is stranded at the end of each cycle's discharge. */
+  /** Of what is stranded in the store that holds more, at the end of each cycle's discharge. */
   readonly per_cycle_MWh_th: number;
 }
 
@@ -50,57 +51,62 @@ const MATCH_H = 1 / 60;
  * @returns null for a unit of one store
  */
 export function mismatchAnswer(usual: Usual): Mismatch | null {
-  const { model, now, power_W } = usual;
+  const { now, power_W, nowEmpty } = usual;
   const ids = idsOf(usual);
   if (ids === null) return null;
   const each = hoursOfEach(usual);
-  const mismatch_h = mismatchOf(usual, now);
-  const more: StoreKind = mismatch_h > 0 ? 'hot' : 'cold';
+  const alone = runAlone(usual, now);
+  const mismatch_h = mismatchBetween(alone);
+  const more = holdsMore(mismatch_h);
   const matched = Math.abs(mismatch_h) < MATCH_H;
-  const stranded = strandedFrom(usual, now, more);
   return {
     power_MW_el: power_W / 1e6,
     together: each.together,
     alone: { [ids.hot]: each.hot, [ids.cold]: each.cold },
     mismatch_h,
     ends_first: matched ? null : ids[more === 'hot' ? 'cold' : 'hot'],
-    stranded: matched ? null : stranded,
+    stranded: matched ? null : strandedBetween(usual, nowEmpty, alone[more], more),
     drift: driftOf(usual),
     trims: trimsOf(usual, mismatch_h),
   };
+}
 
-  function strandedFrom(of: Usual, beds: typeof now, kind: StoreKind): Stranded {
-    const s = model.stores.findIndex((own) => own.store.kind === kind);
-    const first = beds === now ? of.nowEmpty : toEmpty(of, beds);
-    const own = toEmpty(of, beds, storeAlone(model, kind));
-    const remains = contentOf(model, first.end, of.capacity)[s] as number;
-    const given = Math.max(0, remains - (contentOf(model, own.end, of.capacity)[s] as number));
-    return {
-      store: (model.stores[s] as (typeof model.stores)[number]).store.id,
-      remains_MWh_th: remains,
-      stranded_MWh_th: given,
-      worth_MWh_el: given * (of.perStore[s] as number),
-    };
-  }
+const holdsMore = (mismatch_h: number): StoreKind => (mismatch_h > 0 ? 'hot' : 'cold');
 
-  function driftOf(of: Usual): Drift {
-    const after: number[] = [];
-    const left: number[] = [];
-    let beds = now;
-    for (let n = 0; n < 2; n++) {
-      const charge = usualCharge(of, beds, n === 0 ? of.firstCharge_J : of.charge_J);
-      const m = mismatchOf(of, charge.end);
-      after.push(m);
-      const { stranded_MWh_th } = strandedFrom(of, charge.end, m > 0 ? 'hot' : 'cold');
-      left.push(stranded_MWh_th);
-      beds = toEmpty(of, charge.end).end;
-    }
-    return {
-      after_charge_h: after,
-      per_cycle_h: (after[1] as number) - (after[0] as number),
-      per_cycle_MWh_th: (left[1] as number) - (left[0] as number),
-    };
+/** What a store still holds at the end of both, and holds less at the end of its own. */
+function strandedBetween(usual: Usual, both: LimitRun, own: LimitRun, kind: StoreKind): Stranded {
+  const { model, capacity, perStore } = usual;
+  const s = model.stores.findIndex(({ store }) => store.kind === kind);
+  const held = ({ end }: LimitRun): number => contentOf(model, end, capacity)[s] as number;
+  const stranded_MWh_th = Math.max(0, held(both) - held(own));
+  return {
+    store: (model.stores[s] as (typeof model.stores)[number]).store.id,
+    remains_MWh_th: held(both),
+    stranded_MWh_th,
+    worth_MWh_el: stranded_MWh_th * (perStore[s] as number),
+  };
+}
+
+function driftOf(usual: Usual): Drift {
+  const after: number[] = [];
+  const left: number[] = [];
+  let beds = usual.now;
+  let kind: StoreKind | null = null;
+  for (let n = 0; n < 2; n++) {
+    const charge = usualCharge(usual, beds, n === 0 ? usual.firstCharge_J : usual.charge_J);
+    const alone = runAlone(usual, charge.end);
+    const both = toEmpty(usual, charge.end);
+    after.push(mismatchBetween(alone));
+    // Of the same store both times: heat is not compared with cold.
+    kind ??= holdsMore(mismatchBetween(alone));
+    left.push(strandedBetween(usual, both, alone[kind], kind).stranded_MWh_th);
+    beds = both.end;
   }
+  return {
+    after_charge_h: after,
+    per_cycle_h: (after[1] as number) - (after[0] as number),
+    per_cycle_MWh_th: (left[1] as number) - (left[0] as number),
+  };
 }
 
 /** Ids of the hot and the cold store; null where there is one store. */

@@ -4,7 +4,7 @@ import { mismatchOf, WITHOUT } from './alone.js';
 import type { AheadModel, BedsAhead } from './bedsAhead.js';
 import { longest_s } from './capabilityPaths.js';
 import { byStore, contentOf } from './content.js';
-import { type Moment, runToLimit, standFor, withoutRules } from './limitToLimit.js';
+import { type Moment, standFor, watchToLimit, withoutRules } from './limitToLimit.js';
 import { toEmpty, type Usual, usualCharge } from './usual.js';
 
 export const TRIM_WAYS = ['longer_charge', 'run_on', 'stand'] as const;
@@ -79,7 +79,7 @@ function longerCharge(usual: Usual): Trim {
   }
   const further = withoutRules(model, CHARGE_RULES[cause]);
   const enough = { time_s: longest_s(model, charging_W) };
-  const more = runToLimit(further, toFull.end, 'charge', charging_W, enough, options);
+  const more = watchToLimit(further, toFull.end, 'charge', charging_W, enough, options);
   if (more.hours === 0) return none('longer_charge', before, `${more.ends_by} ends it as well`);
   const s = indexOf(model, KIND[cause]);
   const gives = (toEmpty(usual, more.end).energy_J - usual.toEmpty.energy_J) / J_PER_MWH;

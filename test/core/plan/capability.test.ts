@@ -6,7 +6,7 @@ import { startAhead } from '../../../src/core/plan/bedsAhead.js';
 import { type Capability, capabilityOf } from '../../../src/core/plan/capability.js';
 import { chargeOf } from '../../../src/core/plan/capabilityPaths.js';
 import { greatestPower } from '../../../src/core/plan/greatest.js';
-import { runToLimit } from '../../../src/core/plan/limitToLimit.js';
+import { runToLimit, watchToLimit } from '../../../src/core/plan/limitToLimit.js';
 import { createOutlook } from '../../../src/core/plan/outlook.js';
 import { valueAt } from '../../../src/core/plan/piecewise.js';
 import { unitOf } from '../track/plants.js';
@@ -53,7 +53,7 @@ describe.each([
     expect(curve.largest_error_MW_el).toBeLessThanOrEqual(curve.tolerance_MW_el);
     const marched = (step_s: number) => {
       const steps = { ...options, step_s };
-      const run = runToLimit(model, full.end, 'discharge', unit.rated_power_W, most, steps);
+      const run = watchToLimit(model, full.end, 'discharge', unit.rated_power_W, most, steps);
       return { run, end_s: Math.min(run.first_h, run.hours) * 3600 };
     };
     const { run, end_s } = marched(60);

@@ -2,7 +2,7 @@ import { describe, expect, it } from 'vitest';
 import { balanceOf } from '../../../src/core/plan/balance.js';
 import { startAhead } from '../../../src/core/plan/bedsAhead.js';
 import { contentOf } from '../../../src/core/plan/content.js';
-import { runToLimit } from '../../../src/core/plan/limitToLimit.js';
+import { watchToLimit } from '../../../src/core/plan/limitToLimit.js';
 import { blownThrough } from '../../../src/core/plan/trim.js';
 import { usualCycle } from '../../../src/core/plan/usual.js';
 import { hotBed, hotStore, unitOf } from '../track/plants.js';
@@ -121,7 +121,7 @@ describe('heat that is blown through a full store', () => {
       unit: { ...unit, limits: { ...unit.limits, charge_hot_outlet_max_K: null } },
     };
     const now = startAhead(model);
-    const run = runToLimit(open, now, 'charge', 100e3, { time_s: 8 * 3600 }, options);
+    const run = watchToLimit(open, now, 'charge', 100e3, { time_s: 8 * 3600 }, options);
     const stayed =
       (contentOf(model, run.end, capacity)[0] as number) -
       (contentOf(model, now, capacity)[0] as number);
