@@ -3,7 +3,7 @@ import type { UnitDefinition } from '../../core/definitions.js';
 import { type OffersAsk, WrongQuestion } from '../../core/plan/offerAsk.js';
 import { offersAskOf, USUAL_CERTAINTIES } from '../../core/plan/offerWords.js';
 import { wrongValue } from './faults.js';
-import type { offersBody, offersQuery } from './schema/offers.js';
+import type { offersBody, offersQuery } from './schema/offersAsk.js';
 
 type Body = z.output<typeof offersBody>;
 type Query = z.output<typeof offersQuery>;

@@ -6,15 +6,8 @@ import { offersCsv } from '../offerCsv.js';
 import { bodyOfQuery, offersAsk } from '../offerQuestion.js';
 import { askPlan, requireEstimate } from '../planHead.js';
 import { faults, type Routes, unitOf } from '../routes.js';
-import {
-  keptParams,
-  offersBody,
-  offersHistoryQuery,
-  offersHistorySchema,
-  offersQuery,
-  offersReportSchema,
-  offersSchema,
-} from '../schema/offers.js';
+import { offersHistorySchema, offersReportSchema, offersSchema } from '../schema/offers.js';
+import { keptParams, offersBody, offersHistoryQuery, offersQuery } from '../schema/offersAsk.js';
 import { unitParams } from '../schema/questions.js';
 import type { PlantService, UnitNow } from '../service.js';
 import { spanOf } from './history.js';
