@@ -72,13 +72,20 @@ export function offerFigures(
   block_s: number,
   certainties: readonly number[],
 ): OfferFigures {
-  const { start_s, begins_s, ends_s, closes_s, pieces, held } = run;
-  const stops = run.stops_s.map((stop) => (stop >= ends_s ? closes_s : Math.max(begins_s, stop)));
+  const { start_s, begins_s, ends_s, closes_s, pieces } = run;
+  // By the time of the end: everything that is given grows with it, so nothing need be sorted again.
+  const order = Array.from(run.stops_s.keys()).sort(
+    (a, b) => (run.stops_s[a] as number) - (run.stops_s[b] as number),
+  );
+  const held = order.map((k) => run.held[k] as number);
+  const stops = Float64Array.from(order, (k) => {
+    const stop = run.stops_s[k] as number;
+    return stop >= ends_s ? closes_s : Math.max(begins_s, stop);
+  });
   const energyAt = (to_s: number): number => energyBetween(pieces, start_s, to_s) / J_PER_MWH;
   const given = stops.map(energyAt);
   const hours = stops.map((stop) => (Math.min(stop, ends_s) - begins_s) / 3600);
-  const sorted = { hours: hours.slice().sort(), energy: given.slice().sort() };
-  const latest = stops.reduce((a, b) => Math.max(a, b), begins_s);
+  const latest = stops[stops.length - 1] ?? begins_s;
   const count = Math.ceil((latest - start_s) / block_s - 1e-9);
   const wanted = run.bid === null ? certainties : [...certainties, run.bid];
   const blocks = Array.from({ length: Math.max(0, count) }, (_, b): OfferBlock => {
@@ -98,8 +105,7 @@ export function offerFigures(
       alone += 1 / stops.length;
       if (held[k] === 1) jointly += 1 / stops.length;
     });
-    const ascending = own.slice().sort();
-    const at = wanted.map((c) => energyWith(ascending, c));
+    const at = wanted.map((c) => energyWith(own, c));
     return {
       from_s,
       to_s,
@@ -113,20 +119,17 @@ export function offerFigures(
   const wholes = (c: number, of: 'alone' | 'jointly'): number =>
     blocks.filter((block) => block.whole[of] > 0 && block.whole[of] >= c - 1e-9).length;
   return {
-    hours: quantilesOf(sorted.hours),
+    hours: quantilesOf(hours),
     mean_hours: meanOf(hours),
-    energy_MWh_el: quantilesOf(sorted.energy),
+    energy_MWh_el: quantilesOf(given),
     mean_MWh_el: meanOf(given),
     at: certainties.map((certainty) => ({
-      hours: quantile(sorted.hours, certainty),
-      ...energyWith(sorted.energy, certainty),
+      hours: quantile(hours, certainty),
+      ...energyWith(given, certainty),
       whole_blocks: { alone: wholes(certainty, 'alone'), jointly: wholes(certainty, 'jointly') },
     })),
     blocks,
-    bid:
-      run.bid === null
-        ? null
-        : { certainty: run.bid, energy_MWh_el: quantile(sorted.energy, run.bid) },
+    bid: run.bid === null ? null : { certainty: run.bid, energy_MWh_el: quantile(given, run.bid) },
   };
 }
 
