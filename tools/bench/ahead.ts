@@ -50,7 +50,26 @@ function questions(unit: UnitDefinition, now_ms: number): Timed[] {
       certainties: [0.5, 0.75, 0.9, 0.95],
     },
   };
-  return [{ what: 'offers, 6 powers x 4 starts', most_s: 3, question: offers }];
+  return [
+    { what: 'offers, 6 powers x 4 starts', most_s: 3, question: offers },
+    { what: 'schedule, 96 blocks, it holds', most_s: 2, question: day(unit, first_ms, 0.6) },
+    { what: 'schedule, 96 blocks, nearest sought', most_s: 2, question: day(unit, first_ms, 1) },
+  ];
+}
+
+/** A day in quarter-hours: discharges in the morning and the evening, a charge between. */
+function day(unit: UnitDefinition, first_ms: number, share: number): PlanQuestion {
+  const blocks = Array.from({ length: 96 }, (_, i) => {
+    const hour = i / 4;
+    const runs = hour < 1 ? 'stand' : hour < 7 ? 'discharge' : hour < 9 ? 'stand' : 'charge';
+    const mode = hour < 14 ? runs : hour < 17 ? 'stand' : hour < 23 ? 'discharge' : 'stand';
+    // From quarter to quarter another power, as a market clears it.
+    const given_W = (0.8 + 0.05 * (i % 4)) * share * unit.rated_power_W;
+    const power_W = mode === 'stand' ? 0 : mode === 'charge' ? 1.5 * unit.rated_power_W : given_W;
+    const from_ms = first_ms + i * 900_000;
+    return { mode, power_W, from_ms, to_ms: from_ms + 900_000 } as const;
+  });
+  return { kind: 'schedule', ask: { blocks, certainty: 0.9, zone: 'Europe/Berlin' } };
 }
 
 async function fullState(unit: UnitDefinition, file: string): Promise<UnitState> {

@@ -32,7 +32,7 @@ const SAME_S = 1e-3;
  * between them it moves as between an estimate's rollouts (see stateOfCharge: by what a discharge
  * delivers with the auxiliaries, else with the store that holds less), and what the rollout of the
  * next mark says otherwise comes in evenly until then. Approximate: at the marks by what proportion
- * and coarse cells leave, a few thousandths; between them up to about a hundredth more.
+ * and coarse cells leave, a few thousandths; between them less than a hundredth more.
  *
  * @param course of the best march of `command`
  * @param edges_s, marks_s as given to `watchedMarches`; every mark is an edge

@@ -13,6 +13,7 @@ import {
   ruleSamples,
   ruleTimes,
 } from './spread.js';
+import { withSteadyFlow } from './steadyFlow.js';
 
 /** What becomes of a command, and how surely: one value per point of the joint distribution. */
 export interface Evaluation {
@@ -54,7 +55,8 @@ export function evaluate(
 ): Evaluation {
   const course = marches.best();
   const times = ruleTimes(course);
-  const response = responseOf(outlook.model, marches, times);
+  const slopes = responseOf(outlook.model, marches, times);
+  const response = withSteadyFlow(slopes, times, command, course);
   const covariance = covarianceOf(outlook, command, course, times, response);
   return { ...samplesOf({ course, times, covariance }), command, course, beyond_s };
 }

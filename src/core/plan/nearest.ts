@@ -1,5 +1,7 @@
 import type { Direction, UnitDefinition } from '../definitions.js';
+import { inverseNormal } from '../dispatch/normalPoints.js';
 import { type Evaluation, holding } from './evaluation.js';
+import { NORMAL_COUNT } from './latinNormals.js';
 import { directionOf, type Leg } from './leg.js';
 import type { Planner } from './planner.js';
 import { type Trial, type TrialBase, trial, trialBase } from './trial.js';
@@ -30,10 +32,13 @@ const LEAST_FACTOR = 0.01;
 /** Of a factor's range, and at least a minute of a run. */
 const FINEST = 1000;
 const FULL_EVALUATIONS = 4;
+/** Margin at which no better is looked for, and beyond which it tells only its sign [sigmas]. */
+const CLOSE = 0.03;
+const TOLD = 3;
 /** Times that charging and discharging are sought in turns. */
 const TURNS = 3;
 /** Share of the risk by which what is found may be surer than asked for. */
-const SURER = 0.2;
+const SURER = 0.3;
 
 /**
  * The nearest schedule that holds with a certainty. Nearest means: one common factor, the greatest
@@ -125,21 +130,24 @@ function seek(
     tried.set(key, known);
     return 1 - holding(known.episodes, known.first_s, direction);
   };
-  const mend = (direction: Direction, holds: () => boolean): void => {
+  /** By how many sigmas a direction holds more surely than it must. */
+  const margin = (direction: Direction, most: number): number =>
+    sigmasOf(1 - risk(direction)) - sigmasOf(1 - most);
+  const mend = (direction: Direction, most: number): void => {
     drawn[direction] = [];
     factor[direction] = 1;
-    if (holds()) return;
+    if (margin(direction, most) >= 0) return;
     const least = leastFactor(unit, legs, direction);
     const near = before.factor[direction];
     const held = greatest([least, 1], near, (value) => {
       factor[direction] = value;
-      return holds();
+      return margin(direction, most);
     });
     factor[direction] = held ?? least;
     if (held !== null) return;
     drawn[direction] = drawnIn(legs, direction, (ends) => {
       drawn[direction] = ends;
-      return holds();
+      return margin(direction, most);
     });
   };
   const all = 1 - target;
@@ -150,8 +158,8 @@ function seek(
     const most = { charge: left(asked.discharge), discharge: left(asked.charge) };
     // What discharges no longer take is in the way of later charges: in turns.
     for (let n = 0; n < TURNS; n++) {
-      mend('charge', () => risk('charge') <= most.charge);
-      mend('discharge', () => risk('discharge') <= most.discharge);
+      mend('charge', most.charge);
+      mend('discharge', most.discharge);
       if (risk('charge') <= most.charge) break;
     }
   }
@@ -166,42 +174,51 @@ function leastFactor(unit: UnitDefinition, legs: readonly Leg[], direction: Dire
   return Math.min(1, Math.max(LEAST_FACTOR, (least_W / Math.min(...powers)) * (1 + 1e-12)));
 }
 
+/** Sigmas of a probability; what all or none of the points do is as sure as their number tells. */
+function sigmasOf(probability: number): number {
+  const edge = 0.5 / NORMAL_COUNT;
+  return inverseNormal(Math.min(1 - edge, Math.max(edge, probability)));
+}
+
 /**
- * Greatest value that holds, of a range whose upper end does not, to its `FINEST` part; null where
- * none does. A value within the range that was near before is looked at first, in steps that double.
+ * Greatest value whose margin is not below 0, of a range whose upper end's is; to its `FINEST` part,
+ * or within `CLOSE` sigmas; null where there is none. By bisection, at the place that a straight line
+ * tells where both margins do; a value within the range that was near before is looked at first.
  */
 function greatest(
   [least, most]: readonly [number, number],
   near: number,
-  holds: (value: number) => boolean,
+  margin: (value: number) => number,
 ): number | null {
   const range = most - least;
   if (!(range > 0)) return null;
-  let low = Number.NaN;
-  let high = most;
+  let low = { at: Number.NaN, margin: Number.NaN };
+  let high = { at: most, margin: Number.NaN };
+  const look = (at: number): void => {
+    const found = margin(at);
+    if (found >= 0) low = { at, margin: found };
+    else high = { at, margin: found };
+  };
   if (near > least && near < most) {
-    let step = range / 32;
-    const up = holds(near);
-    if (up) low = near;
-    else high = near;
-    for (let at = near + (up ? step : -step); at > least && at < most; ) {
-      if (holds(at)) low = at;
-      else high = at;
-      if (Number.isFinite(low) && high < most) break;
-      step *= 2;
+    look(near);
+    const up = low.at === near;
+    for (let step = range / 32, at = near; ; step *= 2) {
       at += up ? step : -step;
+      if (!(at > least && at < most)) break;
+      look(at);
+      if (Number.isFinite(low.at) && high.at < most) break;
     }
   }
-  if (Number.isNaN(low)) {
-    if (!holds(least)) return null;
-    low = least;
+  if (Number.isNaN(low.at)) {
+    look(least);
+    if (Number.isNaN(low.at)) return null;
   }
-  while (high - low > range / FINEST) {
-    const middle = (low + high) / 2;
-    if (holds(middle)) low = middle;
-    else high = middle;
+  while (high.at - low.at > range / FINEST && !(low.margin < CLOSE)) {
+    const share = low.margin / (low.margin - high.margin);
+    const told = Math.max(low.margin, -high.margin) < TOLD;
+    look(low.at + (high.at - low.at) * (told ? Math.min(0.95, Math.max(0.05, share)) : 0.5));
   }
-  return low;
+  return low.at;
 }
 
 function scale(legs: readonly Leg[], factor: Readonly<Record<Direction, number>>): Leg[] {
@@ -230,18 +247,18 @@ function runsOf(
 function drawnIn(
   legs: readonly Leg[],
   direction: Direction,
-  holds: (ends: DrawnIn[]) => boolean,
+  margin: (ends: DrawnIn[]) => number,
 ): DrawnIn[] {
   const ends: DrawnIn[] = [];
   for (const run of runsOf(legs, direction).reverse()) {
     const with_ = (end_s: number): DrawnIn[] => [...ends, { direction, asked_s: run.to_s, end_s }];
-    if (!holds(with_(run.from_s))) {
+    if (margin(with_(run.from_s)) < 0) {
       ends.push({ direction, asked_s: run.to_s, end_s: run.from_s });
       continue;
     }
     const minutes = (run.to_s - run.from_s) / 60;
     const at = (value: number): number => run.from_s + Math.floor(value) * 60;
-    const most = greatest([0, minutes], 0, (value) => holds(with_(at(value))));
+    const most = greatest([0, minutes], 0, (value) => margin(with_(at(value))));
     ends.push({ direction, asked_s: run.to_s, end_s: at(most ?? 0) });
     return ends;
   }

@@ -19,9 +19,11 @@ export interface Planner {
   evaluate(command: Command, marches?: Marches): Evaluation;
 }
 
-/** A reserve of so many sigmas is as good as certain. */
-const SIGMAS = 4;
+/** A reserve of so many sigmas is as good as certain: 1 in 700 is short all the same. */
+const SIGMAS = 3;
 const LEAST_BEYOND_S = 1800;
+/** Bare beds break sooner or later than the best by about 3 % of a run. */
+const LESS_FINE_S = 1200;
 const MOST_BEYOND_S = 8 * 3600;
 
 /**
@@ -43,14 +45,23 @@ export function createPlanner(context: PlanContext, legs: readonly Leg[], end_s:
       return cutAtEdges(command, [...edges, ...inside]);
     },
     evaluate: (command, marches) => {
+      const further = { beyond_s: furtherThan(beyond_s) };
       const own = marches ?? {
         best: () => outlook.best(command, { beyond_s }),
-        march: (change) => outlook.march(command, change, { beyond_s }),
-        marchFine: (change) => outlook.marchFine(command, change, { beyond_s }),
+        march: (change) => outlook.march(command, change, further),
+        marchFine: (change) => outlook.marchFine(command, change, further),
       };
       return evaluate(outlook, command, own, beyond_s);
     },
   };
+}
+
+/**
+ * How far marches for gradients follow a run: further than the best one, so that whatever breaks there
+ * breaks here too. A rule that these did not reach would have no slope, and no sigma.
+ */
+export function furtherThan(beyond_s: number): number {
+  return 1.1 * beyond_s + LESS_FINE_S;
 }
 
 /** Power of the running legs over rated power, mean over their time; 1 where none runs. */
@@ -79,7 +90,7 @@ function longestRamp({ model }: PlanContext): number {
 
 /**
  * How far past its end a run has to be followed so that what is not reached there is as good as
- * certain: four sigmas of its time, from what the stores' charge, meter and machine leave open.
+ * certain: three sigmas of its time, from what the stores' charge, meter and machine leave open.
  */
 function beyondOf({ model, state, calibration }: Outlook, legs: readonly Leg[]): number {
   const { rated_hours, rated_power_W } = model.unit;
@@ -90,17 +101,15 @@ function beyondOf({ model, state, calibration }: Outlook, legs: readonly Leg[]):
   const soc = Math.max(
     ...model.stores.map((store, s) => storeEnergy(store, state.stores[s] as StoreState).soc_sigma),
   );
-  let run_s = 0;
-  let longest_s = 0;
-  let last: Leg | null = null;
-  for (const leg of legs) {
-    const goesOn = last?.mode === leg.mode && last.to_s === leg.from_s;
-    run_s = directionOf(leg) === null ? 0 : (goesOn ? run_s : 0) + leg.to_s - leg.from_s;
-    longest_s = Math.max(longest_s, run_s);
-    last = leg;
-  }
-  const powers = legs.filter((leg) => directionOf(leg) !== null).map((leg) => leg.power_W);
+  const running = legs.filter((leg) => directionOf(leg) !== null);
+  const total_s = (mode: Leg['mode']): number =>
+    running.reduce((sum, leg) => sum + (leg.mode === mode ? leg.to_s - leg.from_s : 0), 0);
+  const powers = running.map((leg) => leg.power_W);
   const full_s = (rated_hours * 3600 * rated_power_W) / Math.min(rated_power_W, ...powers);
-  const sigma_s = Math.hypot(soc * full_s, relative * longest_s);
+  const sigma_s = Math.hypot(
+    soc * full_s,
+    relative * total_s('charge'),
+    relative * total_s('discharge'),
+  );
   return Math.min(MOST_BEYOND_S, Math.max(LEAST_BEYOND_S, SIGMAS * sigma_s));
 }

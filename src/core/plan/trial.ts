@@ -1,10 +1,11 @@
 import { MODEL_SIGMA } from '../dispatch/hours.js';
+import type { Command } from './command.js';
 import type { Course } from './course.js';
 import type { Episode } from './episode.js';
 import type { Evaluation } from './evaluation.js';
 import { latinNormals, NORMAL_COUNT } from './latinNormals.js';
 import type { Leg } from './leg.js';
-import type { Planner } from './planner.js';
+import { furtherThan, type Planner } from './planner.js';
 
 /** A fully evaluated command, from whose spread the odds of others like it are told. */
 export interface TrialBase {
@@ -25,53 +26,80 @@ const SHORTEST_S = 60;
 
 export function trialBase(planner: Planner, evaluation: Evaluation): TrialBase {
   const { outlook, beyond_s } = planner;
-  return { evaluation, coarse: outlook.march(evaluation.command, {}, { beyond_s }) };
+  return {
+    evaluation,
+    coarse: outlook.march(evaluation.command, {}, { beyond_s: furtherThan(beyond_s) }),
+  };
 }
 
 /**
  * When the runs of some legs break, by one march on the bare beds: each rule's time in a run is that
  * of the base's like run (same direction, most of its time in common), its time since the run's start
- * changed in the proportion in which that march changes it. So the base's spread and what the bare
- * beds leave out are kept in proportion.
+ * changed in the proportion in which that march changes it, which keeps what the bare beds leave out
+ * in proportion. Its spread is that of the base over the run's power: as much energy is uncertain.
  */
 export function trial(planner: Planner, base: TrialBase, legs: readonly Leg[]): Trial {
   const { outlook, beyond_s } = planner;
-  const { episodes } = outlook.march(planner.command(legs), {}, { beyond_s });
-  return { episodes, first_s: episodes.map((episode) => breaks(planner, base, episode)) };
+  const command = planner.command(legs);
+  const { episodes } = outlook.march(command, {}, { beyond_s: furtherThan(beyond_s) });
+  const first_s = episodes.map((episode) => breaks(planner, base, command, episode));
+  return { episodes, first_s };
 }
 
-function breaks(planner: Planner, base: TrialBase, episode: Episode): Float64Array {
+function breaks(
+  planner: Planner,
+  base: TrialBase,
+  command: Command,
+  episode: Episode,
+): Float64Array {
   const first = new Float64Array(NORMAL_COUNT).fill(Number.POSITIVE_INFINITY);
   const e = likeOf(base, episode);
+  const like = base.evaluation.course.episodes[e];
+  const wider =
+    like === undefined ? 1 : meanPower(base.evaluation.command, like) / meanPower(command, episode);
   episode.times_s.forEach((now_s, rule) => {
     if (!Number.isFinite(now_s)) return;
-    const values = timesOf(planner, base, episode, e, rule);
-    values.forEach((value, k) => {
+    timesOf(planner, base, episode, { e, rule, wider }).forEach((value, k) => {
       if (value < (first[k] as number)) first[k] = value;
     });
   });
   return first;
 }
 
-/** Times of one rule in a run [s], by those in the base's run `e`. */
+/** Mean power while a run holds it, ramps down aside [W]. */
+function meanPower({ pieces }: Command, { direction, from_s, held_s }: Episode): number {
+  let energy = 0;
+  for (const piece of pieces) {
+    if (piece.mode !== direction || piece.from_s < from_s || piece.to_s > held_s) continue;
+    energy += (Math.abs(piece.power0_W + piece.power1_W) / 2) * (piece.to_s - piece.from_s);
+  }
+  return energy / (held_s - from_s);
+}
+
+/**
+ * Times of one rule in a run [s], by those in the base's run `e`.
+ *
+ * @param like run and rule of the base, and the factor on the spread of its time
+ */
 function timesOf(
   planner: Planner,
   base: TrialBase,
   { times_s, from_s }: Episode,
-  e: number,
-  rule: number,
+  like: { readonly e: number; readonly rule: number; readonly wider: number },
 ): Float64Array {
+  const { e, rule, wider } = like;
   const lasts_s = (times_s[rule] as number) - from_s;
   const was = base.coarse.episodes[e];
   const known = base.evaluation.samples.find((one) => one.e === e && one.rule === rule);
+  const best_s = base.evaluation.course.episodes[e]?.times_s[rule] as number;
   const lasted_s = was === undefined ? 0 : (was.times_s[rule] as number) - was.from_s;
   if (was === undefined || known === undefined || !isLong(lasted_s)) {
     const sigma = relativeSigma(planner, base);
     const [normals] = latinNormals(1);
     return (normals as Float64Array).map((z) => from_s + lasts_s * (1 + sigma * z));
   }
-  const ratio = lasts_s / lasted_s;
-  return known.values.map((value) => from_s + (value - was.from_s) * ratio);
+  const middle_s = from_s + (best_s - was.from_s) * (lasts_s / lasted_s);
+  return known.values.map((value) => Math.max(from_s, middle_s + (value - best_s) * wider));
 }
 
 const isLong = (run_s: number): boolean => run_s > SHORTEST_S && Number.isFinite(run_s);

@@ -2,6 +2,7 @@ import { type BedsAhead, copyAhead } from './bedsAhead.js';
 import type { Command } from './command.js';
 import type { Course } from './course.js';
 import type { Change, Outlook } from './outlook.js';
+import { furtherThan } from './planner.js';
 import type { Marches } from './spread.js';
 import { type ChargeRecord, chargeRecord } from './storeCharge.js';
 
@@ -44,7 +45,7 @@ export function watchedMarches(
         beds.push(copyAhead(ahead));
       }
     };
-    return outlook[kind](command, change, { beyond_s, each });
+    return outlook[kind](command, change, { beyond_s: furtherThan(beyond_s), each });
   };
   const at = (kind: 'march' | 'marchFine', change: Change): readonly number[][] => {
     const key = keyOf(kind, change);
