@@ -4,9 +4,10 @@ import type { Course } from './course.js';
 import type { Episode } from './episode.js';
 import type { PlanResponse, RuleTime } from './spread.js';
 
-/** A power of which all was marched, to go between by. */
+/** A run of which all was marched, to go between by. */
 export interface ResponseNode {
-  readonly power_W: number;
+  /** Where it stands: ln(power), or its start [s]. */
+  readonly at: number;
   /** The best march, and that on the estimate's own cells. */
   readonly course: Course;
   readonly base: Course;
@@ -52,33 +53,33 @@ function isShort({ course, base }: ResponseNode): boolean {
   });
 }
 
-/** The two nodes about a power, and how far it stands from the lower to the higher, in ln(power). */
-function about(nodes: readonly ResponseNode[], power_W: number) {
-  const above = nodes.findIndex((node) => node.power_W >= power_W);
+/** The two nodes about a place, and how far it stands from the lower to the higher. */
+function about(nodes: readonly ResponseNode[], at: number) {
+  const above = nodes.findIndex((node) => node.at >= at);
   const high = nodes[above];
   const low = nodes[Math.max(0, above - 1)];
-  if (high === undefined || low === undefined || low.power_W > power_W) return null;
+  if (high === undefined || low === undefined || low.at > at) return null;
   if (isShort(low) || isShort(high)) return null;
-  const span = Math.log(high.power_W / low.power_W);
-  return { low, high, weight: span > 0 ? Math.log(power_W / low.power_W) / span : 0 };
+  const span = high.at - low.at;
+  return { low, high, weight: span > 0 ? (at - low.at) / span : 0 };
 }
 
 /**
- * The best march at a power between two whose own were made: that on the estimate's own cells, the
- * length of each run until each rule taken at the ratio of the two marches, which goes linearly in
- * ln(power) from one node to the other.
+ * The best march of a run between two whose own were made: that on the estimate's own cells, the
+ * length of each run until each rule taken at the ratio of the two marches, which goes linearly from
+ * one node to the other.
  *
- * @param nodes ascending in power, the power asked for among them
- * @param base march on the estimate's own cells at the power asked for
+ * @param nodes ascending, `at` among them
+ * @param base march on the estimate's own cells
  * @returns null where a rule breaks in `base` that breaks at neither node, or the two marches or the
  *   nodes tell too little of each other: it has to be marched
  */
 export function blendCourse(
   nodes: readonly ResponseNode[],
-  power_W: number,
+  at: number,
   base: Course,
 ): Course | null {
-  const sides = about(nodes, power_W);
+  const sides = about(nodes, at);
   if (sides === null) return null;
   const { low, high, weight } = sides;
   const ratioAt = (node: ResponseNode, e: number, rule: number): number => {
@@ -115,22 +116,22 @@ function lasted(episode: Episode, rule: number): number {
 }
 
 /**
- * Slopes at a power between two whose own were marched. What a run's end moves by, over the run's
- * length, changes little with its power: that ratio goes linearly in ln(power) from one to the other.
- * A rule that one of the two never comes to takes the other's ratio.
+ * Slopes of a run between two whose own were marched. What a run's end moves by, over the run's length,
+ * changes little with its power and with the wait before it: that ratio goes linearly from one node to
+ * the other. A rule that one of the two never comes to takes the other's ratio.
  *
- * @param nodes ascending in power, the power asked for among them
- * @param times, course at the power asked for
+ * @param nodes ascending, `place` among them
+ * @param times, course of the run itself
  * @returns null where a rule of `times` is known at neither, or a node's run is too short: its slopes
  *   have to be marched
  */
 export function blendResponse(
   nodes: readonly ResponseNode[],
-  power_W: number,
+  place: number,
   course: Course,
   times: readonly RuleTime[],
 ): PlanResponse | null {
-  const sides = about(nodes, power_W);
+  const sides = about(nodes, place);
   if (sides === null) return null;
   const { low, high, weight } = sides;
   const rows = times.map((q) => {

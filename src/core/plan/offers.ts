@@ -1,15 +1,12 @@
 import { RULES } from '../dispatch/rollout.js';
 import type { EndCause, Quantiles } from '../estimate.js';
-import { blendCourse, blendResponse, nodesAmong, type ResponseNode } from './blend.js';
 import type { PlanContext } from './context.js';
-import type { Course } from './course.js';
 import { worthBidding } from './newsvendor.js';
 import { type OffersAsk, requireOffers } from './offerAsk.js';
 import { type OfferBlock, type OfferFigures, offerFigures } from './offerFigures.js';
+import { offerMarches } from './offerMarches.js';
 import { type Limited, type OfferRoute, offerRoutes } from './offerRoute.js';
-import { type Change, createOutlook } from './outlook.js';
-import { breaksOf, covarianceOf, type Marches, responseOf, ruleTimes } from './spread.js';
-import { createTrunk, type Trunk } from './trunk.js';
+import { breaksOf, type PlanSpread } from './spread.js';
 
 /** What ends an offered discharge: a stop rule, or what was commanded. */
 export type OfferEnd = EndCause | 'horizon' | 'connection' | 'outage';
@@ -33,8 +30,6 @@ export interface Offer extends OfferFigures {
 }
 
 const J_PER_MWH = 3.6e9;
-/** Slower fronts are marched in longer steps, as far as they then travel no further in one. */
-const LONGEST_STEP = 2.5;
 
 /**
  * What the unit can sell: net energy at the connection point of a discharge at each power from each
@@ -43,8 +38,7 @@ const LONGEST_STEP = 2.5;
  * The wait is marched as what it is, with the plan until the start, its losses and the spreading of
  * the fronts. Of each discharge the first rule that breaks ends it, by the joint distribution of the
  * rules' times (see `spreadOf`); the greatest flow counts as one, since power falls from then on.
- * What several powers have in common before their start is marched once. The best march and its slopes
- * are made at some powers and go between them in relative terms (see `blendCourse`, `blendResponse`).
+ * What is marched, and what goes between, see `offerMarches`.
  *
  * Block by block, `alone` is the probability that a block is run through whatever became of the plan,
  * `jointly` that it is run through with all blocks before it and the plan. One discharge without a plan
@@ -54,68 +48,22 @@ const LONGEST_STEP = 2.5;
  * @throws WrongQuestion (a RangeError) for what cannot be asked; see `requireOffers`
  */
 export function offersOf(context: PlanContext, ask: OffersAsk): Offer[] {
-  const { model, state, now_ms } = context;
+  const { model, now_ms } = context;
   const starts = requireOffers(model.unit, now_ms, ask);
   const certainty = ask.prices === undefined ? null : worthBidding(ask.prices);
-  return starts.flatMap((start_ms) => {
-    const routes = offerRoutes(context, ask, (start_ms - now_ms) / 1000);
-    const open = routes.filter((route) => route.refused === null);
-    const trunks = new Map<string, Trunk>();
-    const trunkOf = (route: OfferRoute): Trunk => {
-      const key = JSON.stringify(route.head.pieces);
-      const known = trunks.get(key);
-      if (known !== undefined) return known;
-      const made = createTrunk(createOutlook(model, state, route.headLoad), route.head);
-      trunks.set(key, made);
-      return made;
-    };
-    const marched = open.map((route) => {
-      const load = route.power_W / model.unit.rated_power_W;
-      const outlook = createOutlook(model, state, load);
-      const longer = Math.min(LONGEST_STEP, Math.max(1, 1 / load));
-      const marches = trunkOf(route).marches(outlook, route.tail, longer);
-      return { route, outlook, marches, base: marches.march() };
-    });
-    const wholly = ({ route, marches, base }: (typeof marched)[number]): ResponseNode => {
-      const course = marches.best();
-      const times = ruleTimes(course);
-      const known = { ...marches, march: (change?: Change) => marchOr(base, marches, change) };
-      const response = responseOf(model, known, times);
-      return { power_W: route.power_W, course, base, times, response };
-    };
-    const chosen = nodesAmong(open.map((route) => route.power_W));
-    const nodes = chosen.map((i) => wholly(marched[i] as (typeof marched)[number]));
-    const between = (one: (typeof marched)[number]): ResponseNode => {
-      const { power_W } = one.route;
-      const course = blendCourse(nodes, power_W, one.base);
-      const times = course === null ? [] : ruleTimes(course);
-      const response = course === null ? null : blendResponse(nodes, power_W, course, times);
-      if (course === null || response === null) return wholly(one);
-      return { power_W, course, base: one.base, times, response };
-    };
-    const offers = new Map(
-      marched.map((one, i) => {
-        const { route, outlook } = one;
-        const { course, times, response } = nodes[chosen.indexOf(i)] ?? between(one);
-        const covariance = covarianceOf(outlook, route.command, course, times, response);
-        return [route, offerOf(route, { course, times, covariance }, ask, certainty)] as const;
-      }),
-    );
-    return routes.map((route) => offers.get(route) ?? nothing(route, certainty, ask));
+  const routes = starts.map((start_ms) => offerRoutes(context, ask, (start_ms - now_ms) / 1000));
+  const open = [...routes]
+    .sort((a, b) => (a[0]?.start_s ?? 0) - (b[0]?.start_s ?? 0))
+    .map((own) => own.filter((route) => route.refused === null));
+  const spreads = offerMarches(context, open, (ask.legs ?? []).length > 0);
+  return routes.flat().map((route) => {
+    const spread = spreads.get(route);
+    if (spread === undefined) return nothing(route, certainty, ask);
+    return offerOf(route, spread, ask, certainty);
   });
 }
 
-/** The march without a change is at hand. */
-function marchOr(base: Course, marches: Marches, change: Change | undefined): Course {
-  return change === undefined ? base : marches.march(change);
-}
-
-function offerOf(
-  route: OfferRoute,
-  spread: Parameters<typeof breaksOf>[0],
-  ask: OffersAsk,
-  bid: number | null,
-): Offer {
+function offerOf(route: OfferRoute, spread: PlanSpread, ask: OffersAsk, bid: number | null): Offer {
   const { episodes } = spread.course;
   const last = episodes.length - 1;
   const run = episodes[last];

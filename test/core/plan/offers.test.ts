@@ -185,9 +185,11 @@ describe('an offer table', () => {
     expect(offer.ends_by.hot_outlet).toBe(1);
   });
 
-  it('is the same where the slopes between powers are marched, within a tenth of a sigma', () => {
+  it('is the same where all that goes between powers and starts is marched, within a tenth of a sigma', () => {
     const powers_W = [15e3, 25e3, 40e3, 55e3, 70e3, 90e3];
-    const offers = offersOf(full, ask({ powers_W, starts_ms: [6 * HOUR_MS] }));
+    // Neither the first start nor the last, in whatever order they are asked for.
+    const starts_ms = [6, 13, 1].map((hours) => hours * HOUR_MS);
+    const offers = offersOf(full, ask({ powers_W, starts_ms }));
     powers_W.forEach((power_W, i) => {
       const offer = offers[i] as Offer;
       const leg = { mode: 'discharge' as const, power_W, from_s: offer.start_s, to_s: Infinity };
