@@ -51,6 +51,8 @@ describe('rockhour offers', () => {
       'starts.0 = "2025-03-01T06:00:00+01:00": expected 2025-03-01T07:',
     );
     expect(past.code).toBe(2);
+    const block = await offers('--power', '1', '--block', '20min');
+    expect(block.stderr).toContain('block_min = 20: expected 15, 30 or 60');
     const kept = await offers('--power', '1', '--keep');
     expect(kept.stderr).toContain('--keep goes with --url');
   });

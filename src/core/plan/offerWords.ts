@@ -1,7 +1,7 @@
 import type { Mode, UnitDefinition } from '../definitions.js';
 import { instantOf } from './localTime.js';
 import type { BidPrices } from './newsvendor.js';
-import { type OffersAsk, requireOffers, WrongQuestion } from './offerAsk.js';
+import { BLOCKS_S, type OffersAsk, requireOffers, WrongQuestion } from './offerAsk.js';
 
 /** An offer table as people and programs ask for it: MW, minutes, hours, times in ISO 8601. */
 export interface WrittenOffersAsk {
@@ -51,6 +51,9 @@ export function offersAskOf(
     if ('ms' in found) return found.ms;
     throw new WrongQuestion(field, text, found.expected);
   };
+  if (!BLOCKS_S.some((block) => block === written.block_min * 60)) {
+    throw new WrongQuestion('block_min', written.block_min, '15, 30 or 60');
+  }
   const block_s = (written.block_min * 60) as OffersAsk['block_s'];
   const { gate } = written;
   const ask: OffersAsk = {
@@ -83,7 +86,11 @@ export function offersAskOf(
     requireOffers(unit, now_ms, ask);
   } catch (thrown) {
     if (!(thrown instanceof WrongQuestion)) throw thrown;
-    throw new WrongQuestion(asWritten(thrown.field), thrown.value, thrown.expected);
+    throw new WrongQuestion(
+      asWritten(thrown.field),
+      valueAsWritten(thrown.field, thrown.value),
+      thrown.expected,
+    );
   }
   return ask;
 }
@@ -101,4 +108,17 @@ function asWritten(field: string): string {
     [/\[(\d+)\]/g, '.$1'],
   ];
   return names.reduce((text, [found, instead]) => text.replace(found, instead), field);
+}
+
+/** What one of the core's units is in those of a client, by the end of a field's name. */
+const PER_WRITTEN: readonly [RegExp, number][] = [
+  [/powers?_W(\[\d+\])?$/, 1e6],
+  [/horizon_s$/, HOUR_S],
+  [/(closes_before|every)_s$/, 60],
+];
+
+function valueAsWritten(field: string, value: unknown): unknown {
+  if (typeof value !== 'number') return value;
+  const [, per] = PER_WRITTEN.find(([found]) => found.test(field)) ?? [null, 1];
+  return value / per;
 }

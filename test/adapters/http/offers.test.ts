@@ -116,6 +116,7 @@ describe('POST /api/units/{unit}/offers', () => {
     const { error } = answer.json();
     expect(error.field).toBe(field);
     expect(error.expected).toContain(expected);
+    if (field === 'horizon_h') expect(error.value).toBeCloseTo(0.7, 12);
     expect(built?.plant.kept).toEqual([]);
   });
 
