@@ -53,12 +53,14 @@ export class Questions {
     snapshot: UnitSnapshot,
     question: PlanQuestion,
   ): Promise<PlanAnswer> {
-    if (this.quick === null) {
+    // Several marches of whole cycles, seconds each: hours do not wait for them.
+    const line = question.kind === 'balance' ? this.slow : this.quick;
+    if (line === null) {
       await setImmediate();
       return this.core.answerPlan(unit, this.core.restoreUnit(unit, snapshot), question);
     }
     const asked = { kind: 'plan', unit: unit.id, snapshot, question } as const;
-    return (await this.quick.ask(asked)) as PlanAnswer;
+    return (await line.ask(asked)) as PlanAnswer;
   }
 
   /**
