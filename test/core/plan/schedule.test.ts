@@ -9,6 +9,7 @@ import { unitModel } from '../../../src/core/unitModel.js';
 import { inputOf, watchedUnit } from '../dispatch/fullUnit.js';
 import { unitOf } from '../track/plants.js';
 import { unit as ramped } from './offerUnit.js';
+import { engineUnit } from './units.js';
 
 const plain = unitOf();
 const contexts = new Map<UnitDefinition, PlanContext>();
@@ -225,6 +226,24 @@ describe('a schedule', () => {
       ]),
     ).toThrow(/^blocks\.1\.from = "1970-01-01T01:03:00Z": expected 1970-01-01T02:03:00Z or later/);
     expect(() => ask(plain, [['discharge', 60, 0, 1]], 1)).toThrow(/^certainty = 1: expected 0\.5/);
+  });
+
+  it('is checked for one hot store with an engine as well', () => {
+    const engine = engineUnit();
+    const found = ask(engine, [
+      ['charge', 100, 0, 1],
+      ['discharge', 40, 2, 8],
+    ]);
+    expect(Object.keys(found.charge[0]!.stores)).toEqual(['hot']);
+    expect(found.runs.map(({ mode }) => mode)).toEqual(['charge', 'discharge']);
+    expect(found.runs[1]!.ends_by).toBe('hot_outlet');
+    expect(found.stores_probability).toBeLessThan(0.5);
+    const { nearest } = found;
+    expect(nearest!.probability).toBeGreaterThanOrEqual(0.9);
+    expect(nearest!.factor_discharge).toBeLessThan(1);
+    const socs = found.charge.map(({ stores }) => stores.hot!.soc);
+    expect(socs[1]).toBeGreaterThan(socs[0]!);
+    expect(socs.at(-1)).toBeLessThan(socs[2]!);
   });
 
   it('of standing alone holds, and loses a little charge', () => {
