@@ -1,11 +1,12 @@
 import type { UnitModel } from '../unitModel.js';
 import { blendCourse, blendResponse, nodesAmong, type ResponseNode } from './blend.js';
+import type { Command } from './command.js';
 import type { PlanContext } from './context.js';
 import type { Course } from './course.js';
 import type { OfferRoute } from './offerRoute.js';
 import { type Change, createOutlook, type Outlook } from './outlook.js';
 import { covarianceOf, type Marches, type PlanSpread, responseOf, ruleTimes } from './spread.js';
-import { createTrunk, type Trunk } from './trunk.js';
+import { createTrunk, fromNow, type Trunk } from './trunk.js';
 
 /** Slower fronts are marched in longer steps, as far as they then travel no further in one. */
 const LONGEST_STEP = 2.5;
@@ -26,24 +27,25 @@ interface Start {
   readonly runs: readonly Marched[];
   /** Indices in `runs` of the powers between which the others go; ascending in power. */
   readonly chosen: readonly number[];
+  /** What is run before it, as text; the same from start to start where the unit stands between. */
+  readonly plan: string;
 }
 
 /**
  * Courses of offered runs with the covariance of their rules' times. What several powers have in
  * common before their start is marched once. The best march and its slopes are made at some powers and
- * go between them in relative terms, and where nothing is planned before, from the first start to the
- * last alike (see `blendCourse`, `blendResponse`).
+ * go between them in relative terms, and where the unit only stands from start to start, from the
+ * first start to the last alike (see `blendCourse`, `blendResponse`).
  *
  * @param routes by start, ascending; none of them refused
- * @param planned whether runs are planned until the starts
  */
 export function offerMarches(
   context: PlanContext,
   routes: readonly (readonly OfferRoute[])[],
-  planned: boolean,
 ): Map<OfferRoute, PlanSpread> {
   const { model } = context;
-  const starts = routes.filter((own) => own.length > 0).map((own) => startOf(context, own));
+  const plans = new Map<string, Trunk>();
+  const starts = routes.filter((own) => own.length > 0).map((own) => startOf(context, own, plans));
   const first = starts[0];
   const last = starts[starts.length - 1];
   const outer = new Map<Start, ResponseNode[]>();
@@ -56,9 +58,9 @@ export function offerMarches(
   };
   const spreads = new Map<OfferRoute, PlanSpread>();
   for (const start of starts) {
-    const inner = start !== first && start !== last && !planned;
+    const inner = start !== first && start !== last;
     const nodes =
-      inner && first !== undefined && last !== undefined && areNear(first, last)
+      inner && first !== undefined && last !== undefined && areAlike(first, start, last)
         ? start.chosen.map((i) =>
             betweenStarts(model, start.runs[i] as Marched, start.start_s, [
               { at: first.start_s, nodes: nodesOf(first) },
@@ -77,20 +79,25 @@ export function offerMarches(
   return spreads;
 }
 
-function areNear(first: Start, last: Start): boolean {
-  return last.start_s - first.start_s <= LONGEST_BETWEEN_S;
+function areAlike(first: Start, start: Start, last: Start): boolean {
+  if (last.start_s - first.start_s > LONGEST_BETWEEN_S) return false;
+  return first.plan === start.plan && start.plan === last.plan;
 }
 
-function startOf({ model, state }: PlanContext, routes: readonly OfferRoute[]): Start {
+/** @param plans trunks of what is run before several starts, to be shared */
+function startOf(
+  { model, state }: PlanContext,
+  routes: readonly OfferRoute[],
+  plans: Map<string, Trunk>,
+): Start {
   const trunks = new Map<string, Trunk>();
-  const trunkOf = (route: OfferRoute): Trunk => {
-    const key = JSON.stringify(route.head.pieces);
-    const known = trunks.get(key);
-    if (known !== undefined) return known;
-    const made = createTrunk(createOutlook(model, state, route.headLoad), route.head);
-    trunks.set(key, made);
-    return made;
-  };
+  const trunkOf = (route: OfferRoute): Trunk =>
+    shared(trunks, JSON.stringify(route.head.pieces), () => {
+      const outlook = createOutlook(model, state, route.headLoad);
+      const { run, rest } = partsOf(route.head);
+      const plan = shared(plans, planKey(route), () => createTrunk(fromNow(outlook, run)));
+      return createTrunk(plan.marches(outlook, rest));
+    });
   const runs = routes.map((route): Marched => {
     const load = route.power_W / model.unit.rated_power_W;
     const outlook = createOutlook(model, state, load);
@@ -99,7 +106,29 @@ function startOf({ model, state }: PlanContext, routes: readonly OfferRoute[]): 
     return { route, outlook, marches, base: marches.march() };
   });
   const start_s = routes[0]?.start_s ?? Number.NaN;
-  return { start_s, runs, chosen: nodesAmong(routes.map((route) => route.power_W)) };
+  const plan = routes[0] === undefined ? '' : planKey(routes[0]);
+  return { start_s, runs, chosen: nodesAmong(routes.map((route) => route.power_W)), plan };
+}
+
+function shared(known: Map<string, Trunk>, key: string, make: () => Trunk): Trunk {
+  const before = known.get(key);
+  if (before !== undefined) return before;
+  const made = make();
+  known.set(key, made);
+  return made;
+}
+
+function planKey(route: OfferRoute): string {
+  return JSON.stringify([route.headLoad, partsOf(route.head).run.pieces]);
+}
+
+/** What is run before a start, and how the unit stands after it. */
+function partsOf(head: Command): { readonly run: Command; readonly rest: Command } {
+  const last = head.pieces.findLastIndex((piece) => piece.mode !== 'stand');
+  return {
+    run: { pieces: head.pieces.slice(0, last + 1), unmet: [] },
+    rest: { pieces: head.pieces.slice(last + 1), unmet: [] },
+  };
 }
 
 /** Everything marched. */

@@ -55,7 +55,7 @@ export function offersOf(context: PlanContext, ask: OffersAsk): Offer[] {
   const open = [...routes]
     .sort((a, b) => (a[0]?.start_s ?? 0) - (b[0]?.start_s ?? 0))
     .map((own) => own.filter((route) => route.refused === null));
-  const spreads = offerMarches(context, open, (ask.legs ?? []).length > 0);
+  const spreads = offerMarches(context, open);
   return routes.flat().map((route) => {
     const spread = spreads.get(route);
     if (spread === undefined) return nothing(route, certainty, ask);

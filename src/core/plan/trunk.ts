@@ -18,8 +18,17 @@ export interface Trunk {
   marches(outlook: Outlook, tail: Command, longer?: number): Marches;
 }
 
-/** @param head pieces until the plans part, ending with a whole run or a stand; may have none */
-export function createTrunk(outlook: Outlook, head: Command): Trunk {
+/** Marches of pieces from the present on. */
+export function fromNow(outlook: Outlook, head: Command): Marches {
+  return {
+    best: () => outlook.best(head),
+    march: (change) => outlook.march(head, change),
+    marchFine: (change) => outlook.marchFine(head, change),
+  };
+}
+
+/** @param heads marches until the plans part, ending with a whole run or a stand; made once each */
+export function createTrunk(heads: Marches): Trunk {
   const known = new Map<string, Course>();
   const once = (kind: string, march: () => Course): Course => {
     const before = known.get(kind);
@@ -36,14 +45,15 @@ export function createTrunk(outlook: Outlook, head: Command): Trunk {
   return {
     marches: (own, tail, longer = 1) => {
       const on = (kind: 'march' | 'marchFine', change: Change): Course => {
-        const from = once(`${kind} ${JSON.stringify(change)}`, () => outlook[kind](head, change));
+        const from = once(`${kind} ${JSON.stringify(change)}`, () => heads[kind](change));
         const step_s = longer * (kind === 'march' ? STEP_S : FINE_STEP_S);
         return joined(from, own[kind](tail, change, { from, open: true, step_s }));
       };
       return {
         best: () => {
-          const from = once('best', () => outlook.best(head));
-          return joined(from, own.best(tail, { from, open: true, step_s: longer * FINE_STEP_S }));
+          const from = once('best', () => heads.best());
+          const step_s = longer * FINE_STEP_S;
+          return joined(from, own.best(tail, { from, open: true, step_s }));
         },
         march: (change = {}) => on('march', change),
         marchFine: (change = {}) => on('marchFine', change),
