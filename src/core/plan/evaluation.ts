@@ -43,7 +43,7 @@ const SAME_S = 1e-6;
  * Carries out a command with everything that is uncertain.
  *
  * Later runs follow the most likely course of those before: where that stops one early, they begin
- * with what it left.
+ * with what it left. Runs that no leg asks for are marched, but what becomes of them is not told.
  *
  * @param marches of this command, `beyond_s` past the end of each run
  */
@@ -54,11 +54,21 @@ export function evaluate(
   beyond_s: number,
 ): Evaluation {
   const course = marches.best();
-  const times = ruleTimes(course);
+  const times = ruleTimes(course).filter((q) =>
+    isAsked(command, course.episodes[q.episode] as Episode),
+  );
   const slopes = responseOf(outlook.model, marches, times);
   const response = withSteadyFlow(slopes, times, command, course);
   const covariance = covarianceOf(outlook, command, course, times, response);
   return { ...samplesOf({ course, times, covariance }), command, course, beyond_s };
+}
+
+/** Whether a run serves any leg: one that only comes down from before the plan does not. */
+export function isAsked({ pieces }: Command, { direction, from_s, to_s }: Episode): boolean {
+  return pieces.some(
+    (piece) =>
+      piece.leg >= 0 && piece.mode === direction && piece.from_s >= from_s && piece.to_s <= to_s,
+  );
 }
 
 function samplesOf(

@@ -4,7 +4,7 @@ import { type BlockFigures, blockFigures, runEnergies } from './blockFigures.js'
 import { chargesAhead } from './chargeAhead.js';
 import type { PlanContext } from './context.js';
 import type { Course } from './course.js';
-import { type Evaluation, exceeded, holding } from './evaluation.js';
+import { type Evaluation, exceeded, holding, isAsked } from './evaluation.js';
 import type { CommandCause, Leg } from './leg.js';
 import { writtenIn } from './localTime.js';
 import { type NearestLegs, nearestLegs } from './nearest.js';
@@ -168,7 +168,9 @@ export function scheduleOf(context: PlanContext, ask: ScheduleAsk): Schedule {
     first_shortfall: short(firstShortfall),
     first_stores_shortfall: short(storesShortfall),
     blocks: legs.map((leg, i) => ({ ...view(leg), ...(figures[i] as BlockFigures) })),
-    runs: course.episodes.map((_, e) => runView(evaluation, e, written)),
+    runs: course.episodes.flatMap((episode, e) =>
+      isAsked(command, episode) ? [runView(evaluation, e, written)] : [],
+    ),
     reserve_looked_hours: beyond_s / 3600,
     charge: thinned(charges).map(({ t_s, unit: soc, unit_sigma, stores }) => ({
       time: written(t_s),

@@ -2,7 +2,7 @@ import { MODEL_SIGMA } from '../dispatch/hours.js';
 import type { Command } from './command.js';
 import type { Course } from './course.js';
 import type { Episode } from './episode.js';
-import type { Evaluation } from './evaluation.js';
+import { type Evaluation, isAsked } from './evaluation.js';
 import { latinNormals, NORMAL_COUNT } from './latinNormals.js';
 import type { Leg } from './leg.js';
 import { furtherThan, type Planner } from './planner.js';
@@ -53,6 +53,7 @@ function breaks(
   episode: Episode,
 ): Float64Array {
   const first = new Float64Array(NORMAL_COUNT).fill(Number.POSITIVE_INFINITY);
+  if (!isAsked(command, episode)) return first;
   const e = likeOf(base, episode);
   const like = base.evaluation.course.episodes[e];
   const wider =

@@ -228,6 +228,27 @@ describe('a schedule', () => {
     expect(() => ask(plain, [['discharge', 60, 0, 1]], 1)).toThrow(/^certainty = 1: expected 0\.5/);
   });
 
+  it('says nothing of a run that comes down from before it', () => {
+    const now = contextOf(ramped);
+    const running = { mode: 'discharge', power_W: 60e3, stood_s: 0, last: 'discharge' } as const;
+    const at = (hours: number): number => now.now_ms + hours * 3.6e6;
+    const block = { mode: 'charge', power_W: 60e3, from_ms: at(2), to_ms: at(3) } as const;
+    const found = scheduleOf(
+      { ...now, before: running },
+      { blocks: [block], certainty: 0.9, zone: null },
+    );
+    expect(found.runs.map(({ mode }) => mode)).toEqual(['charge']);
+    expect(found.probability).toBe(1);
+    // Where a block goes on at once it is the same run.
+    const on = { mode: 'discharge', power_W: 60e3, from_ms: at(0), to_ms: at(1) } as const;
+    const same = scheduleOf(
+      { ...now, before: running },
+      { blocks: [on], certainty: 0.9, zone: null },
+    );
+    expect(same).toMatchObject({ unmet: [], runs: [{ mode: 'discharge' }] });
+    expect(same.blocks[0]!.ramp_MWh_el).toBeCloseTo(0, 12);
+  });
+
   it('is checked for one hot store with an engine as well', () => {
     const engine = engineUnit();
     const found = ask(engine, [
