@@ -1,5 +1,5 @@
 /**
- * npm run bench: what a scan, an answer and a week cost on this machine. Ratios are taken within one
+ * npm run bench: what a scan, answers and a week cost on this machine. Ratios are taken within one
  * run; absolute times are of this machine at this moment. The week's recording is made once and kept
  * in .bench, so a run that was stopped goes on from there.
  */

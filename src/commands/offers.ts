@@ -64,7 +64,9 @@ async function offers(options: OffersOptions): Promise<void> {
     return;
   }
   const kept = typeof answer.kept === 'number' ? [`Kept as number ${answer.kept}.`] : [];
-  const lines = [headLine(answer), ...offersText(answer, options.blocks === true), ...kept];
+  const given = answer.given === undefined ? [] : [`Given that ${answer.given}.`];
+  const text = offersText(answer, options.blocks === true);
+  const lines = [headLine(answer), ...text, ...given, ...kept];
   process.stdout.write(`${lines.join('\n')}\n`);
 }
 

@@ -132,6 +132,7 @@ describe('rockhour hours of a running daemon', () => {
     expect(stdout).toMatch(/^\d{4}-\S+:[0-9]{2}\+0\d:00 +0\.8 .* cold_outlet \d+ %/m);
     expect(stdout).toContain('above_greatest_power: the unit discharges at 0.400 to 2.000 MW_el');
     expect(stdout).toMatch(/^from +MWh_el 50 % +MWh_el 90 % +mean MWh_el +whole alone/m);
+    expect(stdout).toContain('Given that the machine runs: ');
     expect(stdout).toContain('Kept as number 1.');
     const [kept] = (await api('/api/units/vellmoor/offers/history')).tables;
     expect(kept).toMatchObject({ no: 1, block_s: 900 });

@@ -36,6 +36,7 @@ describe('rockhour offers', () => {
     expect(code).toBe(0);
     const answer = JSON.parse(stdout);
     expect(answer).toMatchObject({ unit: 'vellmoor', block_s: 1800, time_zone: 'Europe/Berlin' });
+    expect(answer.given).toContain('the machine runs');
     const [first] = answer.offers;
     expect(first).toMatchObject({
       ...{ power_MW_el: 1, start: '2025-03-01T09:00:00+01:00', refused: null },

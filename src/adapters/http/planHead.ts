@@ -1,14 +1,11 @@
 import type { UnitDefinition } from '../../core/definitions.js';
 import type { Estimate, Quality } from '../../core/estimate.js';
 import type { PlanAnswers, PlanQuestion } from '../../core/plan/ask.js';
+import { GIVEN } from '../../core/plan/given.js';
 import { HttpFault } from './faults.js';
 import { limitsView } from './limitsView.js';
 import type { PlantService, UnitNow } from './service.js';
 import { ageOf } from './views.js';
-
-/** What every figure about what lies ahead takes for granted. */
-export const GIVEN =
-  'the machine runs: outages that are not in the configuration are left out; all MWh_el at the connection point';
 
 /**
  * The estimate that an answer about what lies ahead would stand on.
