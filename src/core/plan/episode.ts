@@ -60,8 +60,8 @@ export interface DeratedShare {
 /** How a march is made. */
 export interface MarchOptions {
   readonly step_s: number;
-  /** How far past its commanded end a run is followed for the rules' times [s]. */
-  readonly beyond_s: number;
+  /** How far past the end of its last power a run is followed for the rules' times [s]; or of each. */
+  readonly beyond_s: number | ((from_s: number, held_s: number) => number);
   readonly works: readonly (readonly BedWork[])[];
   /** Where another march ended, to go on from; absent = the present. See `CourseEnd`. */
   readonly from?: CourseEnd;
@@ -171,8 +171,10 @@ export function marchEpisode(
     power_W: Math.abs(stopped === null ? last.power1_W : powerAt(pieceAt(pieces, at), at)),
   };
   const whole = stopped === null || held !== null;
-  const until = whole ? on.run.t + options.beyond_s : Number.POSITIVE_INFINITY;
-  if (options.beyond_s > 0 || !whole) followOn(model, on.ahead, on.run, on.power_W, until, options);
+  const { beyond_s } = options;
+  const more_s = typeof beyond_s === 'number' ? beyond_s : beyond_s(first.from_s, held_s);
+  const until = whole ? on.run.t + more_s : Number.POSITIVE_INFINITY;
+  if (more_s > 0 || !whole) followOn(model, on.ahead, on.run, on.power_W, until, options);
   let best = Number.POSITIVE_INFINITY;
   let cause: EndCause = 'empty';
   on.run.times.forEach((time, r) => {

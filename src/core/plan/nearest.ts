@@ -31,7 +31,12 @@ export interface DrawnIn {
 const LEAST_FACTOR = 0.01;
 /** Of a factor's range, and at least a minute of a run. */
 const FINEST = 1000;
-const FULL_EVALUATIONS = 4;
+/** Full evaluations, the one of what was asked among them, and marches between two of them. */
+const USUAL = { evaluations: 4, tries: 80 };
+/** The same where an evaluation takes seconds. */
+const LONG = { evaluations: 3, tries: 40 };
+/** Running time of a plan beyond which that is so [s]. */
+const LONG_S = 48 * 3600;
 /** Margin at which no better is looked for, and beyond which it tells only its sign [sigmas]. */
 const CLOSE = 0.03;
 const TOLD = 3;
@@ -52,7 +57,7 @@ const SURER = 0.3;
  * evaluated in full; where that falls short of the certainty or is much surer, sought anew from there.
  *
  * @param evaluation of the legs as they were asked for
- * @returns null where nothing was found that holds
+ * @returns null where nothing was found that holds, but for standing
  */
 export function nearestLegs(
   planner: Planner,
@@ -61,23 +66,27 @@ export function nearestLegs(
   certainty: number,
 ): NearestLegs | null {
   const asked: Sought = { legs, factor: { charge: 1, discharge: 1 }, drawn_in: [] };
+  const { episodes } = evaluation.course;
+  const runs_s = episodes.reduce((sum, { from_s, held_s }) => sum + held_s - from_s, 0);
+  const most = runs_s > LONG_S ? LONG : USUAL;
   let own = evaluation;
   let found = asked;
   let best: NearestLegs | null = null;
   for (let n = 0; ; n++) {
     const probability = holding(own.course.episodes, own.first_s);
-    const holds = probability >= certainty && own.command.unmet.length === 0;
+    const some = energyOf(found.legs) > 0 || energyOf(legs) === 0;
+    const holds = some && probability >= certainty && own.command.unmet.length === 0;
     const changed = found.factor.discharge < 1 || found.factor.charge < 1;
     if (holds && (best === null || isNearer(found, best))) {
       const taken_out = found.legs.length > legs.length || tookOut(found, legs);
       best = { ...found, taken_out, probability };
     }
     if (holds && (!changed || probability - certainty <= SURER * (1 - certainty))) break;
-    if (n === FULL_EVALUATIONS - 1) break;
+    if (n === most.evaluations - 1) break;
     // A little above, so that cheap and full evaluation seldom disagree.
     const target = certainty + (1 - certainty) * 0.02 * 3 ** n;
-    const next = seek(planner, legs, trialBase(planner, own), target, found);
-    if (n > 0 && sameFactors(next, found)) break;
+    const next = seek(planner, legs, trialBase(planner, own), target, found, most.tries);
+    if (next === null || (n > 0 && sameFactors(next, found))) break;
     found = next;
     own = planner.evaluate(planner.command(found.legs));
   }
@@ -108,14 +117,19 @@ function tookOut(found: Sought, legs: readonly Leg[]): boolean {
   return energyOf(plain) - energyOf(found.legs) > 1e-9 * energyOf(plain);
 }
 
-/** @param before what was found before: where to look first */
+/**
+ * @param before what was found before: where to look first
+ * @param tries most marches
+ * @returns null where these did not do
+ */
 function seek(
   planner: Planner,
   legs: readonly Leg[],
   base: TrialBase,
   target: number,
   before: Sought,
-): Sought {
+  tries: number,
+): Sought | null {
   const { unit } = planner.outlook.model;
   const factor = { charge: 1, discharge: 1 };
   const drawn: Record<Direction, DrawnIn[]> = { charge: [], discharge: [] };
@@ -124,8 +138,13 @@ function seek(
     return withoutUnmet(planner, drawIn(scale(legs, factor), ends));
   };
   const tried = new Map<string, Trial>();
+  let spent = false;
   const risk = (direction?: Direction): number => {
     const key = JSON.stringify([factor, drawn]);
+    if (!tried.has(key) && tried.size >= tries) {
+      spent = true;
+      return 1;
+    }
     const known = tried.get(key) ?? trial(planner, base, made());
     tried.set(key, known);
     return 1 - holding(known.episodes, known.first_s, direction);
@@ -163,6 +182,7 @@ function seek(
       if (risk('charge') <= most.charge) break;
     }
   }
+  if (spent) return null;
   return { legs: made(), factor, drawn_in: [...drawn.charge, ...drawn.discharge] };
 }
 

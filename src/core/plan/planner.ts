@@ -3,7 +3,8 @@ import { storeEnergy } from '../track/storeEnergy.js';
 import type { StoreState } from '../track/storeTracker.js';
 import { type Command, commandOf } from './command.js';
 import type { PlanContext } from './context.js';
-import { cutAtEdges } from './course.js';
+import { type Course, cutAtEdges } from './course.js';
+import type { MarchOptions } from './episode.js';
 import { type Evaluation, evaluate } from './evaluation.js';
 import { directionOf, type Leg } from './leg.js';
 import { createOutlook, type Outlook } from './outlook.js';
@@ -22,9 +23,10 @@ export interface Planner {
 /** A reserve of so many sigmas is as good as certain: 1 in 700 is short all the same. */
 const SIGMAS = 3;
 const LEAST_BEYOND_S = 1800;
-/** Bare beds break sooner or later than the best by about 3 % of a run. */
-const LESS_FINE_S = 1200;
-const MOST_BEYOND_S = 8 * 3600;
+/** Bare beds, and what is changed by a per cent, break by so much of a run sooner or later at most. */
+const LESS_FINE = 0.05;
+const LEAST_FURTHER_S = 600;
+const MOST_BEYOND_S = 4 * 3600;
 
 /**
  * @param end_s end of the last leg [s]
@@ -45,23 +47,44 @@ export function createPlanner(context: PlanContext, legs: readonly Leg[], end_s:
       return cutAtEdges(command, [...edges, ...inside]);
     },
     evaluate: (command, marches) => {
-      const further = { beyond_s: furtherThan(beyond_s) };
-      const own = marches ?? {
-        best: () => outlook.best(command, { beyond_s }),
-        march: (change) => outlook.march(command, change, further),
-        marchFine: (change) => outlook.marchFine(command, change, further),
-      };
-      return evaluate(outlook, command, own, beyond_s);
+      return evaluate(
+        outlook,
+        command,
+        marches ?? plainMarches(outlook, command, beyond_s),
+        beyond_s,
+      );
     },
   };
 }
 
+function plainMarches(outlook: Outlook, command: Command, beyond_s: number): Marches {
+  let further: Partial<MarchOptions> = { beyond_s };
+  return {
+    best: () => {
+      const best = outlook.best(command, { beyond_s });
+      further = { beyond_s: asFarAs(best) };
+      return best;
+    },
+    march: (change) => outlook.march(command, change, further),
+    marchFine: (change) => outlook.marchFine(command, change, further),
+  };
+}
+
 /**
- * How far marches for gradients follow a run: further than the best one, so that whatever breaks there
- * breaks here too. A rule that these did not reach would have no slope, and no sigma.
+ * How far marches for gradients follow each run: further than the best one found a rule broken, so
+ * that it breaks here too. A rule that these did not reach would have no slope, and no sigma. Where
+ * the best one found none, no further than the run.
  */
-export function furtherThan(beyond_s: number): number {
-  return 1.1 * beyond_s + LESS_FINE_S;
+export function asFarAs(best: Course): (from_s: number, held_s: number) => number {
+  return (from_s, held_s) => {
+    const like = best.episodes.find(
+      (episode) => episode.from_s < held_s && episode.held_s > from_s,
+    );
+    const broken = [...(like?.times_s ?? [])].filter(Number.isFinite);
+    if (like === undefined || broken.length === 0) return 0;
+    const last_s = Math.max(...broken);
+    return Math.max(0, last_s - held_s) + LESS_FINE * (last_s - like.from_s) + LEAST_FURTHER_S;
+  };
 }
 
 /** Power of the running legs over rated power, mean over their time; 1 where none runs. */

@@ -5,7 +5,7 @@ import type { Episode } from './episode.js';
 import { type Evaluation, isAsked } from './evaluation.js';
 import { latinNormals, NORMAL_COUNT } from './latinNormals.js';
 import type { Leg } from './leg.js';
-import { furtherThan, type Planner } from './planner.js';
+import { asFarAs, type Planner } from './planner.js';
 
 /** A fully evaluated command, from whose spread the odds of others like it are told. */
 export interface TrialBase {
@@ -21,14 +21,18 @@ export interface Trial {
   readonly first_s: readonly Float64Array[];
 }
 
+/** A run is followed so far past its end; and where the base never broke, or breaks surely [s]. */
+const SIGMAS = 4;
+const UNKNOWN_LOOK_S = 3600;
+const LEAST_LOOK_S = 1800;
 /** A run broken sooner than this tells nothing of one that lasts [s]. */
 const SHORTEST_S = 60;
 
 export function trialBase(planner: Planner, evaluation: Evaluation): TrialBase {
-  const { outlook, beyond_s } = planner;
+  const { outlook } = planner;
   return {
     evaluation,
-    coarse: outlook.march(evaluation.command, {}, { beyond_s: furtherThan(beyond_s) }),
+    coarse: outlook.march(evaluation.command, {}, { beyond_s: asFarAs(evaluation.course) }),
   };
 }
 
@@ -41,9 +45,31 @@ export function trialBase(planner: Planner, evaluation: Evaluation): TrialBase {
 export function trial(planner: Planner, base: TrialBase, legs: readonly Leg[]): Trial {
   const { outlook, beyond_s } = planner;
   const command = planner.command(legs);
-  const { episodes } = outlook.march(command, {}, { beyond_s: furtherThan(beyond_s) });
+  const { episodes } = outlook.march(
+    command,
+    {},
+    {
+      beyond_s: (from_s, held_s) => Math.min(beyond_s, lookOf(base, from_s, held_s)),
+    },
+  );
   const first_s = episodes.map((episode) => breaks(planner, base, command, episode));
   return { episodes, first_s };
+}
+
+/** How far past its end a run has to be followed [s]: so many sigmas of the like run of the base. */
+function lookOf({ evaluation }: TrialBase, from_s: number, held_s: number): number {
+  const { episodes } = evaluation.course;
+  const e = episodes.findIndex((one) => one.from_s < held_s && one.held_s > from_s);
+  const sigmas = evaluation.samples
+    .filter((one) => one.e === e)
+    .map(({ values }) => sigmaOf(values));
+  return sigmas.length > 0 ? Math.max(LEAST_LOOK_S, SIGMAS * Math.max(...sigmas)) : UNKNOWN_LOOK_S;
+}
+
+/** Standard deviation. */
+function sigmaOf(values: Float64Array): number {
+  const mean = values.reduce((sum, v) => sum + v, 0) / values.length;
+  return Math.sqrt(values.reduce((sum, v) => sum + (v - mean) ** 2, 0) / values.length);
 }
 
 function breaks(
@@ -126,9 +152,8 @@ function relativeSigma({ outlook }: Planner, { evaluation }: TrialBase): number 
   );
   const others = evaluation.samples.map(({ e, values }) => {
     const mean = values.reduce((sum, v) => sum + v, 0) / values.length;
-    const variance = values.reduce((sum, v) => sum + (v - mean) ** 2, 0) / values.length;
     const length_s = mean - (evaluation.course.episodes[e]?.from_s as number);
-    return isLong(length_s) ? Math.sqrt(variance) / length_s : 0;
+    return isLong(length_s) ? sigmaOf(values) / length_s : 0;
   });
   return Math.max(least, ...others);
 }

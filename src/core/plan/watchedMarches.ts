@@ -1,8 +1,9 @@
 import { type BedsAhead, copyAhead } from './bedsAhead.js';
 import type { Command } from './command.js';
 import type { Course } from './course.js';
+import type { MarchOptions } from './episode.js';
 import type { Change, Outlook } from './outlook.js';
-import { furtherThan } from './planner.js';
+import { asFarAs } from './planner.js';
 import type { Marches } from './spread.js';
 import { type ChargeRecord, chargeRecord } from './storeCharge.js';
 
@@ -35,6 +36,7 @@ export function watchedMarches(
   const keyOf = (kind: 'march' | 'marchFine', change: Change): string =>
     `${kind} ${JSON.stringify(change)}`;
   const beds: BedsAhead[] = [];
+  let further: Partial<MarchOptions> = { beyond_s };
   const watched = (kind: 'march' | 'marchFine', change: Change): Course => {
     const record = chargeRecord(model.stores, bare, marks_s);
     marks.set(keyOf(kind, change), record);
@@ -45,7 +47,7 @@ export function watchedMarches(
         beds.push(copyAhead(ahead));
       }
     };
-    return outlook[kind](command, change, { beyond_s: furtherThan(beyond_s), each });
+    return outlook[kind](command, change, { ...further, each });
   };
   const at = (kind: 'march' | 'marchFine', change: Change): readonly number[][] => {
     const key = keyOf(kind, change);
@@ -59,7 +61,11 @@ export function watchedMarches(
       at('march', {});
       return beds;
     },
-    best: () => outlook.best(command, { beyond_s, each: edges.each }),
+    best: () => {
+      const best = outlook.best(command, { beyond_s, each: edges.each });
+      further = { beyond_s: asFarAs(best) };
+      return best;
+    },
     march: (change = {}) => watched('march', change),
     marchFine: (change = {}) => watched('marchFine', change),
   };
