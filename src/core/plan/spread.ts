@@ -31,10 +31,10 @@ export interface PlanSpread {
   readonly covariance: readonly Float64Array[];
 }
 
-const PROBE_LOG = 0.01;
-const PROBE_AMBIENT_K = 2;
+export const PROBE_LOG = 0.01;
+export const PROBE_AMBIENT_K = 2;
 /** Ambient temperature over the hours ahead against that of now [K]: common practice, no source. */
-const AMBIENT_SIGMA_K = 3;
+export const AMBIENT_SIGMA_K = 3;
 
 /** Marches of one command; see Outlook. */
 export interface Marches {
