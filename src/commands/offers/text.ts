@@ -41,13 +41,19 @@ function endsBy(offer: WrittenOffer): string {
 function remarks(offer: WrittenOffer): string[] {
   const name = `${offer.power_MW_el} MW_el from ${offer.start}`;
   const said: string[] = [];
-  if (offer.refused !== null) return said;
-  if (offer.begins !== offer.start) said.push(`first power at ${offer.begins}`);
-  for (const { cause, from, to, missing_MW_el } of offer.limited) {
+  const drawn = offer.blocks.reduce((sum, block) => sum + block.drawn_MWh_el, 0);
+  if (offer.begins !== offer.start && offer.refused === null) {
+    said.push(`first power at ${offer.begins}, ${three(drawn)} MWh_el drawn before it`);
+  }
+  for (const { cause, from, to, missing_MW_el } of offer.refused === null ? offer.limited : []) {
     said.push(`${cause} leaves ${three(missing_MW_el)} MW_el undone from ${from} to ${to}`);
   }
-  if (offer.plan_holds !== null && offer.plan_holds < 0.995) {
-    said.push(`the plan until then holds with ${percent(offer.plan_holds)}`);
+  for (const { leg, cause, from, to, missing_MW_el } of offer.plan_limited) {
+    const what = `${three(missing_MW_el)} MW_el of the plan's leg ${leg + 1} undone`;
+    said.push(`${cause} leaves ${what} from ${from} to ${to}`);
+  }
+  if (offer.plan_stores_hold !== null && offer.plan_stores_hold < 0.995) {
+    said.push(`the stores carry the plan until then with ${percent(offer.plan_stores_hold)}`);
   }
   if (offer.bid !== null) {
     const { certainty, energy_MWh_el } = offer.bid;

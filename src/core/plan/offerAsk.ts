@@ -68,7 +68,7 @@ export class WrongQuestion extends RangeError {
  * @param now_ms time of the estimate
  * @throws WrongQuestion for a power that is not above 0, a block of another length, a certainty
  *   outside 0.50 to 0.99, a start that is past, more than 7 days off or not on the grid of blocks of
- *   the connection's time zone, legs that overlap, or prices that say nothing
+ *   the connection's time zone, legs that overlap or begin in the past, or prices that say nothing
  */
 export function requireOffers(unit: UnitDefinition, now_ms: number, ask: OffersAsk): number[] {
   ask.powers_W.forEach((power, i) => {
@@ -86,8 +86,8 @@ export function requireOffers(unit: UnitDefinition, now_ms: number, ask: OffersA
   need(some, 'certainties', certainties, `1 to ${MOST_CERTAINTIES} numbers of ${within}`);
   requireWhole('horizon_s', ask.horizon_s, ask.block_s);
   requirePrices(ask.prices);
-  requirePlan(ask.legs ?? []);
   const asked_ms = Math.max(now_ms, ask.asked_ms ?? now_ms);
+  requirePlan(ask.legs ?? [], asked_ms);
   const starts = startsOf(unit, asked_ms, ask);
   const count = ask.powers_W.length * starts.length;
   need(count <= MOST_OFFERS, 'powers_W x starts_ms', count, `at most ${MOST_OFFERS} together`);
@@ -138,7 +138,7 @@ function startsOf(unit: UnitDefinition, asked_ms: number, ask: OffersAsk): numbe
   return [...starts];
 }
 
-function requirePlan(legs: readonly PlannedLeg[]): void {
+function requirePlan(legs: readonly PlannedLeg[], asked_ms: number): void {
   let last = Number.NEGATIVE_INFINITY;
   legs.forEach((leg, i) => {
     const name = `legs[${i}]`;
@@ -146,6 +146,9 @@ function requirePlan(legs: readonly PlannedLeg[]): void {
     need(sound, `${name}.power_W`, leg.power_W, 'a finite number, 0 or more');
     const at = (ms: number): string => (Number.isFinite(ms) ? writtenIn(null, ms) : String(ms));
     need(leg.to_ms > leg.from_ms, `${name}.to_ms`, at(leg.to_ms), `later than ${at(leg.from_ms)}`);
+    const begins = leg.from_ms >= asked_ms;
+    const earliest = `${at(asked_ms)} or later: that time is past`;
+    need(begins, `${name}.from_ms`, at(leg.from_ms), earliest);
     const ordered = leg.from_ms >= last;
     need(ordered, `${name}.from_ms`, at(leg.from_ms), `${at(last)} or later: legs in order`);
     last = leg.to_ms;

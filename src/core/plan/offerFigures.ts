@@ -40,8 +40,15 @@ export interface OfferAt extends EnergyAt {
 export interface OfferBlock {
   readonly from_s: number;
   readonly to_s: number;
-  /** Net energy if nothing stops it: ramps, start-up and what the connection leaves included. */
+  /** Net energy if nothing stops it: ramps and what the connection leaves included. */
   readonly most_MWh_el: number;
+  /**
+   * Drawn before the first power: ramp down of a planned charge, change-over, start-up, standing. Energy
+   * given less this is the integral of net power, but for `ramp_down_MWh_el`.
+   */
+  readonly drawn_MWh_el: number;
+  /** Given before the first power by a planned discharge that comes down after its end. */
+  readonly ramp_down_MWh_el: number;
   readonly mean_MWh_el: number;
   /** Probability that it is run through: whatever became of the plan, or with all that comes before. */
   readonly whole: { readonly alone: number; readonly jointly: number };
@@ -63,7 +70,8 @@ export interface OfferFigures {
 const J_PER_MWH = 3.6e9;
 
 /**
- * What a discharge gives at each certainty, as a whole and block by block. The end alone is uncertain:
+ * What a discharge gives at each certainty from its first power on, as a whole and block by block.
+ * What comes between the start and the first power is as commanded and told apart. The end alone is uncertain:
  * until it the unit gives what it is commanded, so that every energy is that of a time, grows with it,
  * and the energies of blocks at one certainty add up to that of the whole.
  */
@@ -82,7 +90,10 @@ export function offerFigures(
     const stop = run.stops_s[k] as number;
     return stop >= ends_s ? closes_s : Math.max(begins_s, stop);
   });
-  const energyAt = (to_s: number): number => energyBetween(pieces, start_s, to_s) / J_PER_MWH;
+  const energyAt = (to_s: number): number => energyBetween(pieces, begins_s, to_s) / J_PER_MWH;
+  const ahead = pieces.filter((piece) => piece.to_s <= begins_s + 1e-6);
+  const takes = ahead.filter((piece) => piece.power0_W + piece.power1_W < 0);
+  const gives = ahead.filter((piece) => piece.power0_W + piece.power1_W > 0);
   const given = stops.map(energyAt);
   const hours = stops.map((stop) => (Math.min(stop, ends_s) - begins_s) / 3600);
   const latest = stops[stops.length - 1] ?? begins_s;
@@ -109,6 +120,8 @@ export function offerFigures(
     return {
       from_s,
       to_s,
+      drawn_MWh_el: Math.max(0, -energyBetween(takes, from_s, to_s) / J_PER_MWH),
+      ramp_down_MWh_el: energyBetween(gives, from_s, to_s) / J_PER_MWH,
       most_MWh_el: energyAt(Math.min(to_s, closes_s)) - energyAt(Math.min(from_s, closes_s)),
       mean_MWh_el: meanOf(own),
       whole: { alone: Math.min(1, alone), jointly: Math.min(1, jointly) },

@@ -13,6 +13,11 @@ export interface Limited {
   readonly missing_MW_el: number;
 }
 
+/** Part of the plan until the start that is left undone; `leg` counts the legs asked for from 0. */
+export interface PlanLimited extends Limited {
+  readonly leg: number;
+}
+
 /** The way to one offered discharge and through it; seconds from the state. */
 export interface OfferRoute {
   readonly power_W: number;
@@ -25,6 +30,7 @@ export interface OfferRoute {
   readonly ending: OfferEnd;
   readonly refused: string | null;
   readonly limited: readonly Limited[];
+  readonly planLimited: readonly PlanLimited[];
   /** What start-up and change-over draw before the start and after it [J]. */
   readonly startUp_J: { readonly before: number; readonly after: number };
   /** Everything until the discharge closes; `head` until its run, `tail` its run. */
@@ -57,12 +63,17 @@ export function offerRoutes(context: PlanContext, ask: OffersAsk, start_s: numbe
 /** A ramp down after the horizon is given to its end. */
 const RAMP_MOST_S = 6 * 3600;
 
+/** A leg of the plan, and which it is of those asked for. */
+interface LegUntil extends Leg {
+  readonly index: number;
+}
+
 /** Legs until the start: those past are gone, one that runs now or at the start is cut there. */
-function planUntil(ask: OffersAsk, now_ms: number, start_s: number): Leg[] {
-  return (ask.legs ?? []).flatMap((leg): Leg[] => {
+function planUntil(ask: OffersAsk, now_ms: number, start_s: number): LegUntil[] {
+  return (ask.legs ?? []).flatMap((leg, index): LegUntil[] => {
     const from_s = Math.max(0, (leg.from_ms - now_ms) / 1000);
     const to_s = Math.min(start_s, (leg.to_ms - now_ms) / 1000);
-    return to_s > from_s ? [{ mode: leg.mode, power_W: leg.power_W, from_s, to_s }] : [];
+    return to_s > from_s ? [{ mode: leg.mode, power_W: leg.power_W, from_s, to_s, index }] : [];
   });
 }
 
@@ -71,7 +82,7 @@ function routeOf(
   command: Command,
   power_W: number,
   start_s: number,
-  plan: readonly Leg[],
+  plan: readonly LegUntil[],
 ): OfferRoute {
   const { unit } = context.model;
   const index = plan.length;
@@ -79,11 +90,16 @@ function routeOf(
   const at = groups.findIndex((group) =>
     group.some((piece) => piece.leg === index && piece.mode === 'discharge'),
   );
-  const limited = command.unmet
+  const undone = command.unmet.map(({ leg, cause, from_s, to_s, missing_W }) => ({
+    ...{ leg, cause, from_s, to_s, missing_MW_el: missing_W / 1e6 },
+  }));
+  const limited = undone
     .filter((part) => part.leg === index)
-    .map(({ cause, from_s, to_s, missing_W }) => ({
-      ...{ cause, from_s, to_s, missing_MW_el: missing_W / 1e6 },
-    }));
+    .map(({ leg: _, ...part }): Limited => part);
+  const planLimited = undone.flatMap(({ leg, ...part }): PlanLimited[] => {
+    const own = plan[leg];
+    return own === undefined ? [] : [{ leg: own.index, ...part }];
+  });
   const group = groups[at] ?? [];
   const own = group.filter((piece) => piece.leg === index);
   const begins_s = own[0]?.from_s ?? start_s;
@@ -107,6 +123,7 @@ function routeOf(
     ending: after === 'connection' || after === 'outage' ? after : 'horizon',
     refused: refusalOf(unit.limits.discharge, power_W, first === undefined, blocking?.cause),
     limited,
+    planLimited,
     startUp_J: {
       before: drawn(Number.NEGATIVE_INFINITY, start_s),
       after: drawn(start_s, Number.POSITIVE_INFINITY),

@@ -5,7 +5,14 @@ import type { WrittenOffer } from './offerTable.js';
 /** An offer without its blocks. */
 export type OfferSummary = Pick<
   WrittenOffer,
-  'power_MW_el' | 'start' | 'begins' | 'refused' | 'hours' | 'energy_MWh_el' | 'plan_holds'
+  | 'power_MW_el'
+  | 'start'
+  | 'begins'
+  | 'refused'
+  | 'hours'
+  | 'energy_MWh_el'
+  | 'plan_holds'
+  | 'plan_stores_hold'
 >;
 
 /** What is kept of an offer table, beside its figures block by block; times are ms since 1970. */
@@ -20,8 +27,12 @@ export interface KeptOffers {
 }
 
 export function summaryOf(offer: WrittenOffer): OfferSummary {
-  const { power_MW_el, start, begins, refused, hours, energy_MWh_el, plan_holds } = offer;
-  return { power_MW_el, start, begins, refused, hours, energy_MWh_el, plan_holds };
+  const { power_MW_el, start, begins, refused, hours, energy_MWh_el } = offer;
+  const { plan_holds, plan_stores_hold } = offer;
+  return {
+    ...{ power_MW_el, start, begins, refused, hours, energy_MWh_el },
+    ...{ plan_holds, plan_stores_hold },
+  };
 }
 
 /** The offers of a kept table, as a report holds them against what was delivered. */

@@ -2,19 +2,24 @@ import type { CommandCause } from './leg.js';
 import { writtenIn } from './localTime.js';
 import type { OffersAsk } from './offerAsk.js';
 import type { OfferAt, OfferBlock } from './offerFigures.js';
+import type { Limited } from './offerRoute.js';
 import type { Offer } from './offers.js';
+
+/** Part of what was asked that is left undone. */
+interface WrittenLimited {
+  readonly cause: CommandCause;
+  readonly from: string;
+  readonly to: string;
+  readonly missing_MW_el: number;
+}
 
 /** An offer as it is handed out: times in ISO 8601 with offset. */
 export interface WrittenOffer
-  extends Omit<Offer, 'start_s' | 'begins_s' | 'limited' | 'blocks' | 'at'> {
+  extends Omit<Offer, 'start_s' | 'begins_s' | 'limited' | 'plan_limited' | 'blocks' | 'at'> {
   readonly start: string;
   readonly begins: string;
-  readonly limited: {
-    readonly cause: CommandCause;
-    readonly from: string;
-    readonly to: string;
-    readonly missing_MW_el: number;
-  }[];
+  readonly limited: WrittenLimited[];
+  readonly plan_limited: (WrittenLimited & { readonly leg: number })[];
   readonly at: OfferAt[];
   readonly blocks: WrittenBlock[];
 }
@@ -47,17 +52,19 @@ export function offerTable(
   zone: string | null,
 ): OfferTable {
   const at = (s: number): string => writtenIn(zone, Math.round(now_ms + s * 1000));
+  const written = <T extends Limited>({ from_s, to_s, ...part }: T) => ({
+    ...{ ...part, from: at(from_s), to: at(to_s) },
+  });
   return {
     block_s: ask.block_s,
     certainties: [...ask.certainties],
     time_zone: zone,
-    offers: offers.map(({ start_s, begins_s, limited, blocks, at: figures, ...offer }) => ({
+    offers: offers.map(({ start_s, begins_s, blocks, at: figures, ...offer }) => ({
       ...offer,
       start: at(start_s),
       begins: at(begins_s),
-      limited: limited.map(({ from_s, to_s, ...part }) => ({
-        ...{ ...part, from: at(from_s), to: at(to_s) },
-      })),
+      limited: offer.limited.map(written),
+      plan_limited: offer.plan_limited.map(written),
       at: [...figures],
       blocks: blocks.map(({ from_s, to_s, at: own, ...block }) => ({
         ...{ ...block, from: at(from_s), to: at(to_s) },

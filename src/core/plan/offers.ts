@@ -5,7 +5,7 @@ import { worthBidding } from './newsvendor.js';
 import { type OffersAsk, requireOffers } from './offerAsk.js';
 import { type OfferBlock, type OfferFigures, offerFigures } from './offerFigures.js';
 import { offerMarches } from './offerMarches.js';
-import { type Limited, type OfferRoute, offerRoutes } from './offerRoute.js';
+import { type Limited, type OfferRoute, offerRoutes, type PlanLimited } from './offerRoute.js';
 import { breaksOf, type PlanSpread } from './spread.js';
 
 /** What ends an offered discharge: a stop rule, or what was commanded. */
@@ -21,12 +21,19 @@ export interface Offer extends OfferFigures {
   readonly refused: string | null;
   /** Of what was asked: what the machine's own limits, the connection or an outage leave undone. */
   readonly limited: readonly Limited[];
-  /** Drawn by start-up and change-over: ahead of the start, and after it (in the blocks' figures). */
+  /** The same of the plan until the start; empty = the machine can do what is planned. */
+  readonly plan_limited: readonly PlanLimited[];
+  /** Drawn by start-up and change-over: ahead of the start, and after it (in `drawn_MWh_el`). */
   readonly start_up_MWh_el: { readonly before_start: number; readonly after_start: number };
   /** Probability of each cause that may end it; they add up to 1. */
   readonly ends_by: Readonly<Partial<Record<OfferEnd, number>>>;
-  /** Probability that the plan until the start is carried out as commanded; null where refused. */
+  /**
+   * Probability that the plan until the start is carried out as it was asked: 0 where the machine, the
+   * connection or an outage leave something of it undone; null where refused.
+   */
   readonly plan_holds: number | null;
+  /** Probability that the stores carry all of it that the machine can do; null where refused. */
+  readonly plan_stores_hold: number | null;
 }
 
 const J_PER_MWH = 3.6e9;
@@ -41,7 +48,7 @@ const J_PER_MWH = 3.6e9;
  * What is marched, and what goes between, see `offerMarches`.
  *
  * Block by block, `alone` is the probability that a block is run through whatever became of the plan,
- * `jointly` that it is run through with all blocks before it and the plan. One discharge without a plan
+ * `jointly` that it is run through with all blocks before it and what the machine can do of the plan. One discharge without a plan
  * is cut short once and for all: who runs through a block has run through all before it, the two are
  * the same. After a plan they are not: its own runs may have failed and the block be given all the same.
  *
@@ -94,11 +101,13 @@ function offerOf(route: OfferRoute, spread: PlanSpread, ask: OffersAsk, bid: num
     ask.block_s,
     ask.certainties,
   );
+  const plan_stores_hold = held.reduce((sum, one) => sum + one, 0) / held.length;
   return {
     ...headOf(route),
     ...figures,
     ends_by,
-    plan_holds: held.reduce((sum, one) => sum + one, 0) / held.length,
+    plan_holds: route.planLimited.length > 0 ? 0 : plan_stores_hold,
+    plan_stores_hold,
   };
 }
 
@@ -109,6 +118,7 @@ function headOf(route: OfferRoute) {
     begins_s: route.begins_s,
     refused: route.refused,
     limited: route.limited,
+    plan_limited: route.planLimited,
     start_up_MWh_el: {
       before_start: route.startUp_J.before / J_PER_MWH,
       after_start: route.startUp_J.after / J_PER_MWH,
@@ -143,5 +153,6 @@ function nothing(
     bid: bid === null ? null : { certainty: bid, energy_MWh_el: 0 },
     ends_by,
     plan_holds: null,
+    plan_stores_hold: null,
   };
 }

@@ -109,6 +109,11 @@ describe('POST /api/units/{unit}/offers', () => {
       'plan.1.from',
       'legs in order',
     ],
+    [
+      { plan: [{ mode: 'stand', from: '2026-01-31T06:00:03Z', to: '2026-01-31T07:30:00Z' }] },
+      'plan.0.from',
+      '06:00:04Z or later: that time is past',
+    ],
     [{ power: 3 }, 'power', 'only powers_MW_el'],
   ])('refuses %j, naming the field and what would be right', async (over, field, expected) => {
     const answer = await post(await app(), { ...BODY, ...over });

@@ -22,11 +22,12 @@ export function scriptedOffers(ask: OffersAsk, now_ms: number, charge_MWh: numbe
       };
       return {
         power_MW_el: power_W / 1e6,
-        ...{ start_s, begins_s: start_s, refused: null, limited: [] },
+        ...{ start_s, begins_s: start_s, refused: null, limited: [], plan_limited: [] },
         start_up_MWh_el: { before_start: 0.01, after_start: 0 },
         ...offerFigures(run, ask.block_s, ask.certainties),
         ends_by: { hot_outlet: 1 },
         plan_holds: 1,
+        plan_stores_hold: 1,
       };
     }),
   );

@@ -16,6 +16,8 @@ const LEAST = unit.limits.discharge.power_min_W;
 const MOST = unit.limits.discharge.power_max_W;
 const CERTAINTIES = [0.5, 0.8, 0.9, 0.99];
 const SEED = 4;
+/** Of the estimate: see contextOf. */
+const NOW_MS = 180_000;
 const full = contextOf({ hot: 0.85, cold: 0.85 });
 
 function ask(over: Partial<OffersAsk> = {}): OffersAsk {
@@ -261,15 +263,83 @@ describe('an offer after a plan', () => {
   });
 
   it('begins late, and says so, where the unit is not ready at the start', () => {
-    const charging = [{ mode: 'charge' as const, power_W: 60e3, from_ms: 0, to_ms: HOUR_MS }];
+    const charging = [{ mode: 'charge' as const, power_W: 60e3, from_ms: NOW_MS, to_ms: HOUR_MS }];
     const offer = only(offersOf(full, ask({ legs: charging })));
     // Ramp down of 10 min, change-over of 5, start-up of 6.
     expect(offer.begins_s - offer.start_s).toBeCloseTo(600 + 300 + 360, 6);
     expect(offer.limited[0]).toMatchObject({ cause: 'change_over', from_s: offer.start_s });
     expect(offer.start_up_MWh_el.after_start).toBeGreaterThan(1.8e6 / 3.6e9);
     expect(offer.blocks[0]!.whole.alone).toBe(0);
-    // What is drawn after the start is in the first block: less than nothing was given there.
-    expect(offer.blocks[0]!.most_MWh_el).toBeLessThan(0);
+    // What is drawn after the start stands beside the energy of its block.
+    expect(offer.blocks[0]!.most_MWh_el).toBe(0);
+    expect(offer.blocks[0]!.drawn_MWh_el).toBeGreaterThan(offer.start_up_MWh_el.after_start);
+    expect(offer.plan_limited[0]).toMatchObject({ leg: 0, cause: 'start_up' });
+  });
+
+  it.each([
+    ['discharge' as const, 5 * MOST, 'above_greatest_power', 4 * MOST],
+    ['charge' as const, unit.limits.charge.power_min_W / 2, 'below_least_power', null],
+  ])(
+    'tells what the machine leaves undone of a leg: %s of %d W',
+    (mode, power_W, cause, missing) => {
+      const past = { mode: 'stand' as const, power_W: 0, from_ms: HOUR_MS, to_ms: 2 * HOUR_MS };
+      const leg = { mode, power_W, from_ms: 2 * HOUR_MS, to_ms: 3 * HOUR_MS };
+      const offer = only(offersOf(full, ask({ starts_ms: [6 * HOUR_MS], legs: [past, leg] })));
+      const undone = offer.plan_limited.find((part) => part.cause === cause)!;
+      expect(undone.leg).toBe(1);
+      expect(undone.missing_MW_el * 1e6).toBeCloseTo(missing ?? power_W, 3);
+      expect(offer.limited).toEqual([]);
+      expect([offer.plan_holds, offer.plan_stores_hold]).toEqual([0, 1]);
+    },
+  );
+
+  it('gives nothing negative, and with what is drawn the integral of net power', () => {
+    const edges = fc.uniqueArray(fc.integer({ min: 1, max: 24 }), { minLength: 2, maxLength: 6 });
+    const modes = fc.array(fc.constantFrom('charge' as const, 'discharge' as const), {
+      ...{ minLength: 3, maxLength: 3 },
+    });
+    fc.assert(
+      fc.property(
+        edges,
+        modes,
+        fc.double({ min: LEAST, max: MOST, noNaN: true }),
+        (at, kinds, W) => {
+          const quarters = at.sort((a, b) => a - b);
+          const plan = kinds.slice(0, quarters.length >> 1).map((mode, i) => ({
+            ...{ mode, power_W: mode === 'charge' ? 80e3 : W },
+            from_ms: (quarters[2 * i] as number) * 900_000,
+            to_ms: (quarters[2 * i + 1] as number) * 900_000,
+          }));
+          const start_ms = plan[plan.length - 1]!.to_ms;
+          const horizon_s = 2 * H;
+          const question = ask({ powers_W: [W], starts_ms: [start_ms], legs: plan, horizon_s });
+          const offer = only(offersOf(full, question));
+          const now_ms = start_ms - offer.start_s * 1000;
+          const legs = [...plan, { ...plan[0]!, mode: 'discharge' as const, power_W: W }].map(
+            ({ mode, power_W, from_ms, to_ms }, i) => ({
+              ...{ mode, power_W },
+              from_s: i < plan.length ? (from_ms - now_ms) / 1000 : offer.start_s,
+              to_s: i < plan.length ? (to_ms - now_ms) / 1000 : offer.start_s + horizon_s,
+            }),
+          );
+          const end = offer.start_s + horizon_s + H;
+          const { pieces } = commandOf(unit, legs, [], full.before, end);
+          for (const block of offer.blocks) {
+            for (const { energy_MWh_el } of block.at) {
+              expect(energy_MWh_el).toBeGreaterThanOrEqual(0);
+              expect(energy_MWh_el).toBeLessThanOrEqual(block.most_MWh_el + 1e-12);
+            }
+            expect(Math.min(block.drawn_MWh_el, block.ramp_down_MWh_el)).toBeGreaterThanOrEqual(0);
+            // Until the ramp down at the end is over; from then on it stands, which is not offered.
+            const closes = Math.min(block.to_s, offer.start_s + horizon_s + W / 100);
+            const net = energyBetween(pieces, block.from_s, closes) / 3.6e9;
+            const told = block.most_MWh_el - block.drawn_MWh_el + block.ramp_down_MWh_el;
+            expect(told).toBeCloseTo(net, 9);
+          }
+        },
+      ),
+      { seed: SEED, numRuns: 8 },
+    );
   });
 });
 
@@ -336,6 +406,10 @@ describe('a wrong question', () => {
     [
       { legs: [{ mode: 'stand' as const, power_W: 0, from_ms: 5, to_ms: 5 }] },
       /legs\[0\].to_ms = .*: expected later than/,
+    ],
+    [
+      { legs: [{ mode: 'stand' as const, power_W: 0, from_ms: NOW_MS - 1, to_ms: HOUR_MS }] },
+      /legs\[0\].from_ms = "1970-01-01T00:02:59.999Z": expected .*00:03:00Z or later: that time is past/,
     ],
     [{ gate: { closes_before_s: 0, count: 2, every_s: 900 } }, /expected none beside a gate/],
   ])('%j is answered with field, value and what would be right', (over, said) => {

@@ -15,9 +15,7 @@ const twoWays = (of: z.ZodNumber) =>
 
 const energyAt = {
   certainty: z.number(),
-  energy_MWh_el: z
-    .number()
-    .describe('Net of what a start-up draws after the start; below 0 only where that is more'),
+  energy_MWh_el: z.number().describe('Given from the first power on'),
   expected_shortfall_MWh_el: z.number().describe('Expected value of what is missing below it'),
   mean_below_MWh_el: z.number().nullable().describe('Mean of what is given where it is less'),
 };
@@ -29,24 +27,36 @@ const offerHead = {
   refused: z.string().nullable().describe('Why it is not offered; null: it is'),
   hours: quantilesSchema.describe('From the first power on'),
   energy_MWh_el: quantilesSchema,
-  plan_holds: z.number().nullable().describe('Probability that the plan until then is carried out'),
+  plan_holds: z
+    .number()
+    .nullable()
+    .describe('Probability that the plan until then is carried out as asked; 0 with plan_limited'),
+  plan_stores_hold: z
+    .number()
+    .nullable()
+    .optional()
+    .describe('That the stores carry what the machine can do of it; not in tables kept before'),
+};
+
+const limited = {
+  cause: z.enum(COMMAND_CAUSES),
+  from: timeSchema,
+  to: timeSchema,
+  missing_MW_el: z.number(),
 };
 
 const offerSchema = z.object({
   ...offerHead,
   limited: z
-    .array(
-      z.object({
-        cause: z.enum(COMMAND_CAUSES),
-        from: timeSchema,
-        to: timeSchema,
-        missing_MW_el: z.number(),
-      }),
-    )
+    .array(z.object(limited))
     .describe('What machine, connection or outages leave undone of what was asked'),
+  plan_limited: z
+    .array(z.object({ leg: z.int().describe('Of the plan asked for, from 0'), ...limited }))
+    .optional()
+    .describe('The same of the plan until the start; not in tables kept before'),
   start_up_MWh_el: z
     .object({ before_start: z.number(), after_start: z.number() })
-    .describe('Drawn by change-over and start-up; what comes after the start is in the energies'),
+    .describe('Drawn by change-over and start-up, before and after the start; not in the energies'),
   mean_hours: z.number(),
   mean_MWh_el: z.number(),
   ends_by: shares.describe('Probability of each cause that may end it'),
@@ -59,7 +69,15 @@ const offerSchema = z.object({
     z.object({
       from: timeSchema,
       to: timeSchema,
-      most_MWh_el: z.number().describe('If nothing stops it, ramps and start-up included'),
+      most_MWh_el: z.number().describe('If nothing stops it, ramps included'),
+      drawn_MWh_el: z
+        .number()
+        .optional()
+        .describe('Drawn before the first power: end of a charge, change-over, start-up, standing'),
+      ramp_down_MWh_el: z
+        .number()
+        .optional()
+        .describe('Given before the first power by a planned discharge that comes down'),
       mean_MWh_el: z.number(),
       whole: twoWays(z.number()).describe('Probability that it is run through'),
       at: z.array(z.object(energyAt)),
