@@ -2,7 +2,7 @@ import { writeFileSync } from 'node:fs';
 import type { Command } from 'commander';
 import type { NearestView, Schedule } from '../core/plan/schedule.js';
 import { readBlocks, type WrittenBlock } from '../core/plan/scheduleAsk.js';
-import { SCHEDULE_COLUMNS } from '../core/plan/scheduleCsv.js';
+import { csvValue, SCHEDULE_COLUMNS } from '../core/plan/scheduleCsv.js';
 import { fileReasonOf, RockhourError } from '../errors.js';
 import {
   type AheadHead,
@@ -32,14 +32,16 @@ async function answerOf(options: ScheduleOptions): Promise<ScheduleAnswer> {
   const recorded = await stateFromRecording(options);
   const { unit, head } = recorded;
   const zone = options.zone ?? unit.limits.connection?.time_zone ?? null;
-  const read = readBlocks(written, zone, Date.parse(head.time), pathOf);
+  const now_ms = Date.parse(head.time);
+  const asked_ms = now_ms + (head.age_s ?? 0) * 1000;
+  const read = readBlocks(written, zone, now_ms, pathOf, asked_ms);
   if ('faults' in read) {
     const said = read.faults.map(
       ({ field, value, expected }) => `${field} is ${JSON.stringify(value)}; expected ${expected}`,
     );
     throw new RockhourError('USAGE', said.join('\n'));
   }
-  const ask = { blocks: read.blocks, certainty, zone };
+  const ask = { blocks: read.blocks, certainty, zone, asked_ms };
   return { ...head, ...answerRecorded(recorded, { kind: 'schedule', ask }) };
 }
 
@@ -56,7 +58,9 @@ function writeNearest(path: string, nearest: NearestView | null): void {
     process.stderr.write(`${path} is not written: no schedule near it was found that holds\n`);
     return;
   }
-  const rows = nearest.blocks.map((block) => SCHEDULE_COLUMNS.map((name) => block[name]).join(','));
+  const rows = nearest.blocks.map((block) =>
+    SCHEDULE_COLUMNS.map((name) => csvValue(block[name])).join(','),
+  );
   try {
     writeFileSync(path, `${[SCHEDULE_COLUMNS.join(','), ...rows].join('\r\n')}\r\n`);
   } catch (cause) {

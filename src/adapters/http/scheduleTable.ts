@@ -1,4 +1,5 @@
 import type { Schedule } from '../../core/plan/schedule.js';
+import { csvValue } from '../../core/plan/scheduleCsv.js';
 import { toCsv } from './csv.js';
 
 const COLUMNS = [
@@ -25,7 +26,7 @@ export interface ScheduleCsvHead {
 
 /**
  * A schedule check as rows, one per block, with the states of charge at its end (empty where there
- * are more edges than the answer holds) and what the whole answer stands on.
+ * are more edges than the answer holds) and what the whole answer stands on; numbers to 9 digits.
  */
 export function scheduleTable(head: ScheduleCsvHead, schedule: Schedule): string {
   const stores = Object.keys(schedule.charge[0]?.stores ?? {});
@@ -43,7 +44,7 @@ export function scheduleTable(head: ScheduleCsvHead, schedule: Schedule): string
       [`${id}_soc_at_end`, at?.stores[id]?.soc ?? null],
       [`${id}_soc_at_end_sigma`, at?.stores[id]?.soc_sigma ?? null],
     ]);
-    return {
+    const row = {
       ...block,
       state_of_charge_at_end: at?.state_of_charge ?? null,
       state_of_charge_at_end_sigma: at?.state_of_charge_sigma ?? null,
@@ -55,6 +56,8 @@ export function scheduleTable(head: ScheduleCsvHead, schedule: Schedule): string
       estimate_age_s: head.age_s,
       valid_until: head.valid_until,
     };
+    const rounded = Object.entries(row).map(([name, value]) => [name, csvValue(value)]);
+    return { ...(Object.fromEntries(rounded) as typeof row), time: head.time };
   });
   return toCsv(columns, rows);
 }

@@ -18,6 +18,8 @@ export interface ScheduleAsk {
   readonly certainty: number;
   /** IANA zone in which times are written; null = UTC. */
   readonly zone: string | null;
+  /** Clock of who asks [ms since 1970]; a start before it is past. Absent: time of the estimate. */
+  readonly asked_ms?: number;
 }
 
 /** A block as it was written, before anything is known of it. */
@@ -52,6 +54,8 @@ const DECIMAL = /^[+-]?(\d+\.?\d*|\.\d+)(e[+-]?\d+)?$/i;
  * @param zone IANA zone of times without offset, null = none: then each needs its offset
  * @param now_ms source time of the estimate, before which no block may begin
  * @param pathOf name of a block's field in the question, as in `blocks.3.from`
+ * @param asked_ms clock of who asks, in source time; where later than `now_ms`, no block may begin
+ *   before it
  * @returns the blocks in order of time, or every fault
  */
 export function readBlocks(
@@ -59,6 +63,7 @@ export function readBlocks(
   zone: string | null,
   now_ms: number,
   pathOf: (index: number, field: string) => string = (index, field) => `blocks.${index}.${field}`,
+  asked_ms: number = now_ms,
 ): { readonly blocks: readonly Block[] } | { readonly faults: readonly Fault[] } {
   const faults: Fault[] = [];
   if (zone !== null && !isTimeZone(zone)) {
@@ -74,7 +79,7 @@ export function readBlocks(
     const fault = (field: string, value: unknown, expected: string): void => {
       faults.push({ field: pathOf(i, field), value: value ?? null, expected });
     };
-    return { index: i, block: readBlock(block, zone, now_ms, fault) };
+    return { index: i, block: readBlock(block, zone, { now_ms, asked_ms }, fault) };
   });
   const sound = read.flatMap(({ index, block }) => (block === null ? [] : [{ index, block }]));
   sound.sort((a, b) => a.block.from_ms - b.block.from_ms);
@@ -94,7 +99,7 @@ export function readBlocks(
 function readBlock(
   written: WrittenBlock,
   zone: string | null,
-  now_ms: number,
+  { now_ms, asked_ms }: { readonly now_ms: number; readonly asked_ms: number },
   fault: (field: string, value: unknown, expected: string) => void,
 ): Block | null {
   let wrong = false;
@@ -121,9 +126,11 @@ function readBlock(
   };
   const from_ms = at('from');
   const to_ms = at('to');
-  const now = writtenIn(zone, now_ms);
-  if (from_ms < now_ms) {
-    refuse('from', written.from, `${now} or later, the time of the estimate: that time is past`);
+  const earliest_ms = Math.max(now_ms, asked_ms);
+  if (from_ms < earliest_ms) {
+    const what = asked_ms > now_ms ? 'the present' : 'the time of the estimate';
+    const earliest = writtenIn(zone, earliest_ms);
+    refuse('from', written.from, `${earliest} or later, ${what}: that time is past`);
   }
   if (to_ms <= from_ms) refuse('to', written.to, `later than from, ${writtenIn(zone, from_ms)}`);
   else if (to_ms > now_ms + MOST_AHEAD_MS) {
@@ -161,7 +168,7 @@ export function requireSchedule(ask: ScheduleAsk, now_ms: number): void {
     const from = writtenIn(null, from_ms);
     return { mode, power_MW_el: power_W / 1e6, from, to: writtenIn(null, to_ms) };
   });
-  const read = readBlocks(written, ask.zone, now_ms);
+  const read = readBlocks(written, ask.zone, now_ms, undefined, ask.asked_ms);
   const [first] = 'faults' in read ? read.faults : [];
   if (first === undefined) return;
   throw new RangeError(

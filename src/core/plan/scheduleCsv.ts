@@ -3,6 +3,16 @@ import type { Fault, WrittenBlock } from './scheduleAsk.js';
 /** Columns of a schedule written as CSV, in any order; `power_MW_el` may be left out or empty. */
 export const SCHEDULE_COLUMNS = ['from', 'to', 'mode', 'power_MW_el'] as const;
 
+/** Digits of a number in CSV: what floats add beyond them is noise. */
+const DIGITS = 9;
+
+/** A number as it stands in CSV, to 9 significant digits; anything else as it is. */
+export function csvValue<T>(value: T): T | number {
+  return typeof value === 'number' && Number.isFinite(value)
+    ? Number(value.toPrecision(DIGITS))
+    : value;
+}
+
 /** Name of a block's field in a CSV: its row, the header being row 1. */
 export function csvPath(rows: readonly number[]): (index: number, field: string) => string {
   return (index, field) => `row ${rows[index]} ${field}`;

@@ -59,6 +59,8 @@ const ASKED = {
     blocks: [{ mode: 'discharge', power_W: 1.5e6, from_ms: NOON, to_ms: NOON + 3.6e6 }],
     certainty: 0.9,
     zone: 'Europe/Paris',
+    // The wall clock of the script is 4 s past the estimate.
+    asked_ms: Date.UTC(2026, 0, 31, 6) + 4000,
   },
 };
 
@@ -90,7 +92,8 @@ describe('POST /api/units/{unit}/schedule', () => {
   it('writes CSV after RFC 4180, a row per block, by format or by Accept', async () => {
     const own = await app();
     const blocks = [
-      BLOCKS[0],
+      // Three digits too many: 0.1 + 0.2 and the like.
+      { ...BLOCKS[0], power_MW_el: 1.4999999999999998 },
       { ...BLOCKS[1], from: '2026-01-31T17:00:00Z', to: '2026-01-31T18:00:00Z' },
     ];
     const byFormat = await post(own, { blocks, format: 'csv' });
@@ -102,6 +105,7 @@ describe('POST /api/units/{unit}/schedule', () => {
     const names = header!.split(',');
     const cell = (row: string, name: string) => row.split(',')[names.indexOf(name)];
     expect(cell(first!, 'from')).toBe('2026-01-31T17:00:00+01:00');
+    expect(cell(first!, 'power_MW_el')).toBe('1.5');
     expect(cell(first!, 'planned_MWh_el')).toBe('1.5');
     expect(cell(first!, 'state_of_charge_at_end')).toBe('0.5');
     expect(cell(second!, 'hot_soc_at_end')).toBe('0.7');
@@ -118,7 +122,14 @@ describe('POST /api/units/{unit}/schedule', () => {
       { from: '2026-01-31T06:30' },
       'blocks.0.from',
       '2026-01-31T06:30',
-      /07:00:00\+01:00 or later, the time of the estimate/,
+      /07:00:04\+01:00 or later, the present: that time is past/,
+    ],
+    [
+      'a start between the estimate and the wall clock',
+      { from: '2026-01-31T07:00:03' },
+      'blocks.0.from',
+      '2026-01-31T07:00:03',
+      /07:00:04\+01:00 or later, the present/,
     ],
     [
       'an end before its start',
@@ -186,6 +197,25 @@ describe('POST /api/units/{unit}/schedule', () => {
     const { error } = answer.json();
     expect(error).toMatchObject({ code: 'wrong_value', field });
     expect(error.expected).toMatch(expected);
+  });
+
+  it('refuses a question without a body', async () => {
+    const { app: own, plant } = await app();
+    for (const headers of [{}, { 'content-type': 'application/json' }]) {
+      const payload = 'content-type' in headers ? 'null' : undefined;
+      const answer = await own.inject({
+        method: 'POST',
+        url: URL,
+        headers,
+        ...(payload ? { payload } : {}),
+      });
+      expect(answer.statusCode).toBe(400);
+      expect(answer.json().error).toMatchObject({
+        ...{ code: 'wrong_value', field: 'body', value: null },
+        expected: expect.stringMatching(/^an object .*or CSV as text\/csv$/),
+      });
+    }
+    expect(plant.planAsked).toEqual([]);
   });
 
   it('names the keys it knows where one is not', async () => {

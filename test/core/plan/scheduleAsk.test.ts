@@ -111,6 +111,25 @@ describe('blocks as they are written', () => {
     });
   });
 
+  it('are refused before the clock of who asks, where that is later than the estimate', () => {
+    const asked_ms = Date.UTC(2026, 9, 24, 10, 0, 30);
+    const read = readBlocks([NOON], ZONE, NOW_MS, undefined, asked_ms);
+    expect(read).toMatchObject({
+      faults: [
+        {
+          field: 'blocks.0.from',
+          expected: '2026-10-24T12:00:30+02:00 or later, the present: that time is past',
+        },
+      ],
+    });
+    // A clock that is behind the estimate changes nothing.
+    expect(readBlocks([NOON], ZONE, NOW_MS, undefined, NOW_MS - 1e6)).toHaveProperty('blocks');
+    const noon = { mode: 'stand', power_W: 0, from_ms: asked_ms - 1, to_ms: asked_ms + 1 } as const;
+    const ask = { blocks: [noon], certainty: 0.9, zone: ZONE };
+    expect(() => requireSchedule(ask, NOW_MS)).not.toThrow();
+    expect(() => requireSchedule({ ...ask, asked_ms }, NOW_MS)).toThrow(/the present/);
+  });
+
   it('are refused where they overlap, with the end of the one before', () => {
     const later = { ...NOON, from: '2026-10-24T12:45', to: '2026-10-24T14:00' };
     expect(faultsOf([later, NOON])).toEqual([

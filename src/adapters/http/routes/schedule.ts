@@ -13,11 +13,16 @@ import { askPlan, requireEstimate } from '../planHead.js';
 import { faults, type Routes, unitOf } from '../routes.js';
 import { scheduleTable } from '../scheduleTable.js';
 import { unitParams } from '../schema/questions.js';
-import { scheduleBody, scheduleQuery, scheduleSchema } from '../schema/schedule.js';
+import { BODY, scheduleBody, scheduleQuery, scheduleSchema } from '../schema/schedule.js';
 
 /** 400 blocks with room to spare [bytes]. */
 const BODY_LIMIT = 256 * 1024;
 const USUAL_CERTAINTY = 0.9;
+
+function noBody(): HttpFault {
+  const message = `body is missing; expected ${BODY}`;
+  return new HttpFault(400, 'wrong_value', message, { field: 'body', value: null, expected: BODY });
+}
 
 function refuse(found: readonly Fault[]): HttpFault {
   const [{ field, value, expected }, ...others] = found as [Fault, ...Fault[]];
@@ -25,11 +30,15 @@ function refuse(found: readonly Fault[]): HttpFault {
   return new HttpFault(400, 'wrong_value', message, { field, value, expected, others });
 }
 
-/** @param body text of a CSV, or the blocks of a JSON body */
+/**
+ * @param body text of a CSV, or the blocks of a JSON body
+ * @param asked_ms the wall clock, in source time
+ */
 function blocksOf(
   body: string | readonly WrittenBlock[],
   zone: string | null,
   now_ms: number,
+  asked_ms: number,
 ): readonly Block[] {
   let written: readonly WrittenBlock[];
   let path: ReturnType<typeof csvPath> | undefined;
@@ -39,7 +48,7 @@ function blocksOf(
     written = csv.blocks;
     path = csvPath(csv.rows);
   } else written = body;
-  const read = readBlocks(written, zone, now_ms, path);
+  const read = readBlocks(written, zone, now_ms, path, asked_ms);
   if ('faults' in read) throw refuse(read.faults);
   return read.blocks;
 }
@@ -90,14 +99,18 @@ export const scheduleRoutes: Routes = (app, { service, tuning }) => {
     },
     async (request, reply) => {
       const now = unitOf(service, request.params.unit);
-      const body = request.body as z.output<typeof scheduleBody> | string;
+      const body = request.body as z.output<typeof scheduleBody> | string | undefined;
+      // A question without a body has no content type, and so no schema that it is held against.
+      if (body === undefined || body === null) throw noBody();
       const json = typeof body === 'string' ? null : body;
       const stale = json?.stale ?? request.query.stale;
       const zone = json?.zone ?? request.query.zone ?? zoneOf(now.unit);
       const certainty = json?.certainty ?? request.query.certainty ?? USUAL_CERTAINTY;
       const estimate = requireEstimate(now, stale);
-      const blocks = blocksOf(json?.blocks ?? (body as string), zone, Date.parse(estimate.time));
-      const question = { kind: 'schedule', ask: { blocks, certainty, zone } } as const;
+      const now_ms = Date.parse(estimate.time);
+      const asked_ms = now_ms + Math.max(0, Math.round((now.age_s ?? 0) * 1000));
+      const blocks = blocksOf(json?.blocks ?? (body as string), zone, now_ms, asked_ms);
+      const question = { kind: 'schedule', ask: { blocks, certainty, zone, asked_ms } } as const;
       const { head, answer } = await askPlan(service, now, stale, question);
       reply.header('vary', 'Accept');
       if (wantsCsv(json?.format ?? request.query.format, request.headers.accept)) {

@@ -19,7 +19,8 @@ const TIME = 'a time in ISO 8601 with offset, or local to the zone, as in 2026-0
 const POWER = `a power in MW_el from 0 to ${GREATEST_POWER_MW}: the direction is told by the mode`;
 const MODE = `one of ${MODES.join(', ')}`;
 const BLOCKS = `1 to ${MOST_BLOCKS} blocks`;
-const BODY = 'an object {"blocks": [{"mode", "power_MW_el", "from", "to"}]}, or CSV as text/csv';
+export const BODY =
+  'an object {"blocks": [{"mode", "power_MW_el", "from", "to"}]}, or CSV as text/csv';
 
 const zone = z
   .string({ error: ZONE })
