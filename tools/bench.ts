@@ -18,6 +18,7 @@ import { advance, hoursAt, startUnit } from '../src/core/unit.js';
 import { unitModel } from '../src/core/unitModel.js';
 import { createDemoPlant } from '../src/plant/demoPlant.js';
 import { benchAhead } from './bench/ahead.js';
+import { benchAsking } from './bench/asking.js';
 import { helpIfAsked } from './help.js';
 
 helpIfAsked(import.meta.url);
@@ -189,4 +190,5 @@ await recordWeek(unit, week);
 benchKernel(unit);
 await benchScans(unit, week);
 await benchAhead(unit, week, line);
+await benchAsking(`${root}config/demo.yaml`, line);
 await benchWeek(unit, week);
