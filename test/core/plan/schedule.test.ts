@@ -355,4 +355,46 @@ describe('the nearest schedule that holds', () => {
     ]);
     expect(out.nearest).toMatchObject({ taken_out: true, factor_discharge: 1, probability: 1 });
   });
+
+  /**
+   * A window of the connection, 02:00 to 03:00, lets 50 kW out; the estimate is of 00:03. Asked for:
+   * 60 kW from 01:03 to 02:33. Ramps are 100 W/s: from 60 to 50 kW 100 s, to be over by 02:00.
+   */
+  it('goes into a window of the connection with its limit, from the ramp ahead of it on', () => {
+    const windows = [{ from_min: 120, to_min: 180, export_max_W: 50e3, import_max_W: 200e3 }];
+    const most = { export_max_W: 90e3, import_max_W: 200e3 };
+    const connection = { time_zone: 'Etc/UTC', ...most, windows };
+    const unit = { ...ramped, limits: { ...ramped.limits, connection } };
+    const { nearest } = ask(unit, [['discharge', 60, 1, 2.5]]);
+    expect(nearest).toMatchObject({ taken_out: true, factor_discharge: 1, drawn_in: [] });
+    expect(nearest!.probability).toBe(1);
+    expect(nearest!.blocks).toEqual([
+      {
+        ...{ mode: 'discharge', power_MW_el: 0.06 },
+        ...{ from: '1970-01-01T01:03:00Z', to: '1970-01-01T01:58:20Z' },
+      },
+      {
+        ...{ mode: 'discharge', power_MW_el: 0.05 },
+        ...{ from: '1970-01-01T01:58:20Z', to: '1970-01-01T02:33:00Z' },
+      },
+    ]);
+    // Asked for as it is written, it is possible.
+    const again = ask(unit, [
+      ['discharge', 60, 1, 1 + (55 * 60 + 20) / 3600],
+      ['discharge', 50, 1 + (55 * 60 + 20) / 3600, 2.5],
+    ]);
+    expect(again).toMatchObject({ probability: 1, unmet: [] });
+    // A ramp of 83.3 s cannot be written to the millisecond: it begins at the second before it has to.
+    const odd = ask(unit, [['discharge', 175 / 3, 1, 2.5]]).nearest!;
+    expect(odd.blocks[0]!.to).toBe('1970-01-01T01:58:36Z');
+    expect(odd.probability).toBe(1);
+    // A charge meets a window that lets nothing in: it stands from the ramp down ahead of it on.
+    const shut = { ...windows[0]!, import_max_W: 0 };
+    const closed = { ...ramped.limits, connection: { ...connection, windows: [shut] } };
+    const charge = ask({ ...ramped, limits: closed }, [['charge', 60, 1, 2.5]]).nearest!;
+    expect(charge.blocks).toMatchObject([
+      { mode: 'charge', power_MW_el: 0.06, to: '1970-01-01T01:50:00Z' },
+      { mode: 'stand', to: '1970-01-01T02:33:00Z' },
+    ]);
+  });
 });
