@@ -12,6 +12,7 @@ import type { SiteConfig } from './config/site.js';
 import type { UnitDefinition } from './core/definitions.js';
 import type { DispatchAnswer } from './core/estimate.js';
 import { limitedAnswers } from './core/plan/limitedBy.js';
+import { shortTable } from './core/plan/offerSummary.js';
 import type { WatchEvent } from './core/watch/event.js';
 import { type DaemonClock, SteadyClock, wallClock } from './daemon/clock.js';
 import { type Core, realCore } from './daemon/core.js';
@@ -320,7 +321,7 @@ class RockhourDaemon implements Daemon {
 
   private sayOffers(unit: string, { no, asked_ms, answer }: KeptTable): void {
     const asked = new Date(asked_ms).toISOString();
-    this.mqtt.announcer.offers({ ...answer, unit, no, asked });
+    this.mqtt.announcer.offers({ ...shortTable(answer), unit, no, asked });
   }
 
   private tellEvent(event: WatchEvent): void {

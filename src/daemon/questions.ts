@@ -2,6 +2,7 @@ import { setImmediate } from 'node:timers/promises';
 import type { UnitDefinition } from '../core/definitions.js';
 import type { DispatchAnswer } from '../core/estimate.js';
 import type { PlanAnswer, PlanQuestion } from '../core/plan/ask.js';
+import { takesLong } from '../core/plan/offerAsk.js';
 import type { UnitSnapshot } from '../core/unit.js';
 import type { UnitWorth } from '../core/worth/unitWorth.js';
 import type { Core } from './core.js';
@@ -54,7 +55,9 @@ export class Questions {
     question: PlanQuestion,
   ): Promise<PlanAnswer> {
     // Several marches of whole cycles, seconds each: hours do not wait for them.
-    const line = question.kind === 'balance' ? this.slow : this.quick;
+    const long =
+      question.kind === 'balance' || (question.kind === 'offers' && takesLong(question.ask));
+    const line = long ? this.slow : this.quick;
     if (line === null) {
       await setImmediate();
       return this.core.answerPlan(unit, this.core.restoreUnit(unit, snapshot), question);

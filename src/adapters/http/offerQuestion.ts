@@ -8,16 +8,30 @@ import type { offersBody, offersQuery } from './schema/offersAsk.js';
 type Body = z.output<typeof offersBody>;
 type Query = z.output<typeof offersQuery>;
 
-/** The question of a query as that of a body: the simple case, without a plan. */
+/**
+ * The question of a query as that of a body: the simple case, without a plan.
+ *
+ * @throws HttpFault wrong_value for a start beside a gate, or one price without the other
+ */
 export function bodyOfQuery(query: Query): Body {
   const { block_min, closes_before_min, count, every_min } = query;
   const { shortfall_per_MWh_el, surplus_per_MWh_el } = query;
   const priced = shortfall_per_MWh_el !== undefined || surplus_per_MWh_el !== undefined;
   const gated = (closes_before_min ?? count ?? every_min) !== undefined;
+  if (gated && query.start !== undefined) {
+    const beside = 'none beside closes_before_min, count or every_min';
+    throw wrongValue('start', query.start.join(','), beside);
+  }
+  const prices = { shortfall_per_MWh_el, surplus_per_MWh_el };
+  for (const [field, price] of Object.entries(prices)) {
+    if (!priced || (price ?? 0) > 0) continue;
+    const both = 'a number above 0, per MWh_el: both prices or none';
+    throw wrongValue(field, price ?? null, both);
+  }
   return {
     powers_MW_el: query.power_MW,
     ...(query.start === undefined ? {} : { starts: query.start }),
-    ...(gated || query.start === undefined
+    ...(query.start === undefined
       ? {
           gate: {
             closes_before_min: closes_before_min ?? 0,
@@ -47,6 +61,7 @@ export function bodyOfQuery(query: Query): Body {
 /**
  * The core's question; see `offersAskOf`.
  *
+ * @param of where it was asked: a query has names of its own
  * @throws HttpFault wrong_value with the field as it was written
  */
 export function offersAsk(
@@ -54,11 +69,22 @@ export function offersAsk(
   body: Body,
   now_ms: number,
   asked_ms: number,
+  of: 'query' | 'body',
 ): OffersAsk {
   try {
     return offersAskOf(unit, body, now_ms, asked_ms);
   } catch (thrown) {
     if (!(thrown instanceof WrongQuestion)) throw thrown;
-    throw wrongValue(thrown.field, thrown.value, thrown.expected);
+    const field = of === 'body' ? thrown.field : inQuery(thrown.field);
+    throw wrongValue(field, thrown.value, thrown.expected);
   }
+}
+
+/** A field of a body as a query names it. */
+function inQuery(field: string): string {
+  return field
+    .replace(/powers_MW_el/, 'power_MW')
+    .replace(/starts/, 'start')
+    .replace(/certainties/, 'certainty')
+    .replace(/^(gate|prices)\./, '');
 }

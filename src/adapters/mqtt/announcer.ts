@@ -28,7 +28,7 @@ export interface HeadroomMessage {
   readonly answers: readonly Headroom[];
 }
 
-/** A kept offer table as it was answered over HTTP. */
+/** A kept offer table without its blocks, see `shortTable`. */
 export interface OffersMessage {
   readonly unit: string;
   /** The number under which it is kept, and when it was asked for. */
@@ -54,7 +54,7 @@ export const HEARTBEAT_MS = 10_000;
  * - `PREFIX/UNIT/state`     the estimate of the last scan
  * - `PREFIX/UNIT/dispatch`  `{"time", "unit", "answers": [...]}`: the hours computed last
  * - `PREFIX/UNIT/headroom`  what the unit can still take at configured charging powers, see HeadroomMessage
- * - `PREFIX/UNIT/offers`    the offer table kept last, as HTTP answered it, with `no` and `asked`
+ * - `PREFIX/UNIT/offers`    the offer table kept last without its blocks, with `no` and `asked`
  * - `PREFIX/UNIT/alarms`    `{"time", "unit", "standing": [...], "last": event or null}`
  * - `PREFIX/heartbeat`      `{"status": "online", "time", "site", "version", "uptime_s"}` every 10 s,
  *                           and `{"status": "offline"}` by the broker's last will or a clean stop

@@ -43,8 +43,14 @@ export interface OffersAsk {
   readonly asked_ms?: number;
 }
 
-/** Most powers times starts of one question: each is marched. */
-export const MOST_OFFERS = 96;
+/** Most powers times starts of one question: each is marched, through the plan too. */
+export const MOST_OFFERS = 48;
+export const MOST_LEGS = 48;
+/** Most blocks of one offer, and most figures of a table: offers times blocks times certainties. */
+export const MOST_BLOCKS = 200;
+export const MOST_FIGURES = 24_000;
+/** Longest discharge that is looked at, over the rated hours at rated power. */
+const MOST_RATED = 4;
 export const MOST_CERTAINTIES = 12;
 const DAYS_MS = 7 * 86_400_000;
 const LEAST_CERTAINTY = 0.5;
@@ -68,7 +74,8 @@ export class WrongQuestion extends RangeError {
  * @param now_ms time of the estimate
  * @throws WrongQuestion for a power that is not above 0, a block of another length, a certainty
  *   outside 0.50 to 0.99, a start that is past, more than 7 days off or not on the grid of blocks of
- *   the connection's time zone, legs that overlap or begin in the past, or prices that say nothing
+ *   the connection's time zone, legs that overlap or begin in the past, prices that say nothing, or more than can be answered
+ *   in one go
  */
 export function requireOffers(unit: UnitDefinition, now_ms: number, ask: OffersAsk): number[] {
   ask.powers_W.forEach((power, i) => {
@@ -85,13 +92,47 @@ export function requireOffers(unit: UnitDefinition, now_ms: number, ask: OffersA
   const some = certainties.length > 0 && certainties.length <= MOST_CERTAINTIES;
   need(some, 'certainties', certainties, `1 to ${MOST_CERTAINTIES} numbers of ${within}`);
   requireWhole('horizon_s', ask.horizon_s, ask.block_s);
+  const longest_s = MOST_BLOCKS * ask.block_s;
+  const short = ask.horizon_s === undefined || ask.horizon_s <= longest_s;
+  need(short, 'horizon_s', ask.horizon_s, `at most ${longest_s} s: ${MOST_BLOCKS} blocks`);
   requirePrices(ask.prices);
   const asked_ms = Math.max(now_ms, ask.asked_ms ?? now_ms);
   requirePlan(ask.legs ?? [], asked_ms);
   const starts = startsOf(unit, asked_ms, ask);
-  const count = ask.powers_W.length * starts.length;
+  const powers_W = [...new Set(ask.powers_W)];
+  const count = powers_W.length * starts.length;
   need(count <= MOST_OFFERS, 'powers_W x starts_ms', count, `at most ${MOST_OFFERS} together`);
+  const blocks = powers_W.reduce((sum, power) => {
+    return sum + Math.ceil(longestOffer(unit, ask, power) / ask.block_s);
+  }, 0);
+  const figures = blocks * starts.length * new Set(certainties).size;
+  const fewer = 'fewer of them, longer blocks or a shorter horizon';
+  const product = 'powers_W x starts_ms x blocks x certainties';
+  need(figures <= MOST_FIGURES, product, figures, `at most ${MOST_FIGURES} together: ${fewer}`);
   return starts;
+}
+
+/** Longest discharge that is offered at a power [s]: the horizon, or what is surely enough. */
+export function longestOffer(unit: UnitDefinition, ask: OffersAsk, power_W: number): number {
+  const rated_s = MOST_RATED * unit.rated_hours * 3600;
+  const most_s = rated_s * Math.max(1, unit.rated_power_W / power_W);
+  return Math.min(most_s, ask.horizon_s ?? MOST_BLOCKS * ask.block_s);
+}
+
+/** The same question with every power, start and certainty once, in the order they are first asked. */
+export function distinct(ask: OffersAsk): OffersAsk {
+  return {
+    ...ask,
+    powers_W: [...new Set(ask.powers_W)],
+    certainties: [...new Set(ask.certainties)],
+    ...(ask.starts_ms === undefined ? {} : { starts_ms: [...new Set(ask.starts_ms)] }),
+  };
+}
+
+/** Whether a question that may be asked takes many seconds, so that hours should not wait for it. */
+export function takesLong(ask: OffersAsk): boolean {
+  const starts = ask.gate?.count ?? new Set(ask.starts_ms).size;
+  return new Set(ask.powers_W).size * starts > MOST_OFFERS / 2 || (ask.legs ?? []).length > 8;
 }
 
 /** The grid of blocks: clock times of the connection's zone, in UTC without one. */
@@ -135,11 +176,12 @@ function startsOf(unit: UnitDefinition, asked_ms: number, ask: OffersAsk): numbe
       `the beginning of a block of ${block_s / 60} min, such as ${before} or ${writtenIn(zone, next)}`,
     );
   });
-  return [...starts];
+  return [...new Set(starts)];
 }
 
 function requirePlan(legs: readonly PlannedLeg[], asked_ms: number): void {
   let last = Number.NEGATIVE_INFINITY;
+  need(legs.length <= MOST_LEGS, 'legs', legs.length, `at most ${MOST_LEGS} legs`);
   legs.forEach((leg, i) => {
     const name = `legs[${i}]`;
     const sound = leg.power_W >= 0 && Number.isFinite(leg.power_W);

@@ -2,7 +2,7 @@ import { type Command, commandOf, type Piece } from './command.js';
 import type { PlanContext } from './context.js';
 import { energyBetween, runsOf } from './course.js';
 import type { CommandCause, Leg } from './leg.js';
-import type { OffersAsk } from './offerAsk.js';
+import { longestOffer, type OffersAsk } from './offerAsk.js';
 import type { OfferEnd } from './offers.js';
 
 /** Part of what was asked that is left undone, though the beds could. */
@@ -41,18 +41,14 @@ export interface OfferRoute {
   readonly headLoad: number;
 }
 
-/** Longest discharge that is looked at, over the rated hours at rated power. */
-const MOST_RATED = 4;
-
 /** Commands of the discharges at all powers asked for from one start, with the plan before. */
 export function offerRoutes(context: PlanContext, ask: OffersAsk, start_s: number): OfferRoute[] {
   const { unit } = context.model;
   const plan = planUntil(ask, context.now_ms, start_s);
-  const rated_s = unit.rated_hours * 3600;
   return ask.powers_W.map((power_W) => {
-    const most_s = MOST_RATED * rated_s * Math.max(1, unit.rated_power_W / power_W);
-    const to_s = ask.horizon_s === undefined ? Number.POSITIVE_INFINITY : start_s + ask.horizon_s;
-    const end_s = start_s + Math.min(most_s, (ask.horizon_s ?? most_s) + RAMP_MOST_S);
+    const longest_s = longestOffer(unit, ask, power_W);
+    const to_s = start_s + longest_s;
+    const end_s = to_s + RAMP_MOST_S;
     const offered: Leg = { mode: 'discharge', power_W, from_s: start_s, to_s };
     const legs = [...plan, offered];
     const command = commandOf(unit, legs, context.ceilings(end_s), context.before, end_s);

@@ -1,6 +1,7 @@
 import type { OffersAsk } from './offerAsk.js';
+import type { OfferAt } from './offerFigures.js';
 import type { PastOffer } from './offerReport.js';
-import type { WrittenOffer } from './offerTable.js';
+import type { AnsweredOffers, WrittenOffer } from './offerTable.js';
 
 /** An offer without its blocks. */
 export type OfferSummary = Pick<
@@ -32,6 +33,26 @@ export function summaryOf(offer: WrittenOffer): OfferSummary {
   return {
     ...{ power_MW_el, start, begins, refused, hours, energy_MWh_el },
     ...{ plan_holds, plan_stores_hold },
+  };
+}
+
+/** An offer as it is announced: at each certainty too, but not block by block. */
+export interface ShortOffer extends OfferSummary {
+  readonly at: readonly Pick<OfferAt, 'certainty' | 'hours' | 'energy_MWh_el' | 'whole_blocks'>[];
+}
+
+/** An answered table with its head, but without blocks: some kB, whatever was asked. */
+export function shortTable(
+  answer: AnsweredOffers,
+): Omit<AnsweredOffers, 'offers'> & { readonly offers: ShortOffer[] } {
+  return {
+    ...answer,
+    offers: answer.offers.map((offer) => ({
+      ...summaryOf(offer),
+      at: offer.at.map(({ certainty, hours, energy_MWh_el, whole_blocks }) => ({
+        ...{ certainty, hours, energy_MWh_el, whole_blocks },
+      })),
+    })),
   };
 }
 

@@ -41,6 +41,16 @@ export interface OfferTable {
 /** An offer table as it was answered, with its head. */
 export type AnsweredOffers = OfferTable & Readonly<Record<string, unknown>>;
 
+/** Digits of a figure as it is handed out: none of them is noise of the arithmetic. */
+const DIGITS = 9;
+
+function rounded<T>(value: T): T {
+  if (typeof value === 'number') return Number(value.toPrecision(DIGITS)) as T;
+  if (Array.isArray(value)) return value.map(rounded) as T;
+  if (typeof value !== 'object' || value === null) return value;
+  return Object.fromEntries(Object.entries(value).map(([key, one]) => [key, rounded(one)])) as T;
+}
+
 /**
  * @param now_ms time of the estimate, from which the offers' seconds count
  * @param zone IANA name in which times are written; null = UTC
@@ -60,15 +70,15 @@ export function offerTable(
     certainties: [...ask.certainties],
     time_zone: zone,
     offers: offers.map(({ start_s, begins_s, blocks, at: figures, ...offer }) => ({
-      ...offer,
+      ...rounded(offer),
       start: at(start_s),
       begins: at(begins_s),
-      limited: offer.limited.map(written),
-      plan_limited: offer.plan_limited.map(written),
-      at: [...figures],
+      limited: rounded(offer.limited.map(written)),
+      plan_limited: rounded(offer.plan_limited.map(written)),
+      at: rounded([...figures]),
       blocks: blocks.map(({ from_s, to_s, at: own, ...block }) => ({
-        ...{ ...block, from: at(from_s), to: at(to_s) },
-        at: [...own],
+        ...{ ...rounded(block), from: at(from_s), to: at(to_s) },
+        at: rounded([...own]),
       })),
     })),
   };

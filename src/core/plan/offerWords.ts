@@ -1,7 +1,7 @@
 import type { Mode, UnitDefinition } from '../definitions.js';
 import { instantOf } from './localTime.js';
 import type { BidPrices } from './newsvendor.js';
-import { BLOCKS_S, type OffersAsk, requireOffers, WrongQuestion } from './offerAsk.js';
+import { BLOCKS_S, distinct, type OffersAsk, requireOffers, WrongQuestion } from './offerAsk.js';
 
 /** An offer table as people and programs ask for it: MW, minutes, hours, times in ISO 8601. */
 export interface WrittenOffersAsk {
@@ -86,13 +86,14 @@ export function offersAskOf(
     requireOffers(unit, now_ms, ask);
   } catch (thrown) {
     if (!(thrown instanceof WrongQuestion)) throw thrown;
+    const { field, value, expected } = thrown;
     throw new WrongQuestion(
-      asWritten(thrown.field),
-      valueAsWritten(thrown.field, thrown.value),
-      thrown.expected,
+      asWritten(field),
+      field === 'starts_ms' ? written.starts : valueAsWritten(field, value),
+      expectedAsWritten(field, expected),
     );
   }
-  return ask;
+  return distinct(ask);
 }
 
 /** Names of the core as a client writes them. */
@@ -111,14 +112,20 @@ function asWritten(field: string): string {
 }
 
 /** What one of the core's units is in those of a client, by the end of a field's name. */
-const PER_WRITTEN: readonly [RegExp, number][] = [
-  [/powers?_W(\[\d+\])?$/, 1e6],
-  [/horizon_s$/, HOUR_S],
-  [/(closes_before|every)_s$/, 60],
+const PER_WRITTEN: readonly [RegExp, number, string][] = [
+  [/powers?_W(\[\d+\])?$/, 1e6, 'MW_el'],
+  [/horizon_s$/, HOUR_S, 'h'],
+  [/(closes_before|every)_s$/, 60, 'min'],
 ];
 
 function valueAsWritten(field: string, value: unknown): unknown {
   if (typeof value !== 'number') return value;
   const [, per] = PER_WRITTEN.find(([found]) => found.test(field)) ?? [null, 1];
-  return value / per;
+  return Number((value / per).toPrecision(9));
+}
+
+/** Seconds told of a field in the unit that it is asked in. */
+function expectedAsWritten(field: string, expected: string): string {
+  const [, per, name] = PER_WRITTEN.find(([found]) => found.test(field)) ?? [null, 1, 's'];
+  return expected.replace(/(\d+) s\b/g, (_, s) => `${Number(s) / per} ${name}`);
 }

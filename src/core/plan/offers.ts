@@ -2,7 +2,7 @@ import { RULES } from '../dispatch/rollout.js';
 import type { EndCause, Quantiles } from '../estimate.js';
 import type { PlanContext } from './context.js';
 import { worthBidding } from './newsvendor.js';
-import { type OffersAsk, requireOffers } from './offerAsk.js';
+import { distinct, type OffersAsk, requireOffers } from './offerAsk.js';
 import { type OfferBlock, type OfferFigures, offerFigures } from './offerFigures.js';
 import { offerMarches } from './offerMarches.js';
 import { type Limited, type OfferRoute, offerRoutes, type PlanLimited } from './offerRoute.js';
@@ -52,11 +52,13 @@ const J_PER_MWH = 3.6e9;
  * is cut short once and for all: who runs through a block has run through all before it, the two are
  * the same. After a plan they are not: its own runs may have failed and the block be given all the same.
  *
+ * @param asked powers, starts and certainties asked for twice are answered once
  * @throws WrongQuestion (a RangeError) for what cannot be asked; see `requireOffers`
  */
-export function offersOf(context: PlanContext, ask: OffersAsk): Offer[] {
+export function offersOf(context: PlanContext, asked: OffersAsk): Offer[] {
   const { model, now_ms } = context;
-  const starts = requireOffers(model.unit, now_ms, ask);
+  const starts = requireOffers(model.unit, now_ms, asked);
+  const ask = distinct(asked);
   const certainty = ask.prices === undefined ? null : worthBidding(ask.prices);
   const routes = starts.map((start_ms) => offerRoutes(context, ask, (start_ms - now_ms) / 1000));
   const open = [...routes]

@@ -97,7 +97,7 @@ describe('POST /api/units/{unit}/offers', () => {
     [{ block_min: 20 }, 'block_min', '15, 30 or 60'],
     [{ powers_MW_el: [-1] }, 'powers_MW_el.0', 'each above 0'],
     [{ certainties: [0.3] }, 'certainties.0', '0.50 to 0.99'],
-    [{ horizon_h: 0.7 }, 'horizon_h', 'a multiple of the block of 1800 s'],
+    [{ horizon_h: 0.7 }, 'horizon_h', 'a multiple of the block of 0.5 h'],
     [{ gate: { closes_before_min: 60 } }, 'starts', 'none beside a gate'],
     [
       {
@@ -170,13 +170,62 @@ describe('GET /api/units/{unit}/offers', () => {
     const blocks = rows.map((row) => row.split(',')).filter((row) => row[5] === 'block');
     const sum = blocks.filter((row) => row[8] === '0.9').reduce((a, row) => a + Number(row[9]), 0);
     const whole = rows.map((row) => row.split(',')).find((row) => row[8] === '0.9')!;
-    expect(sum).toBeCloseTo(Number(whole[9]), 9);
+    // Nine digits of each.
+    expect(sum).toBeCloseTo(Number(whole[9]), 7);
   });
 
   it('refuses one price alone', async () => {
     const { get } = await app();
     const { error } = (await get(`${URL}?power_MW=1&shortfall_per_MWh_el=80`)).json();
-    expect(error.field).toBe('prices.surplus_per_MWh_el');
+    expect(error).toMatchObject({ field: 'surplus_per_MWh_el', value: null });
+    expect(error.expected).toContain('both prices or none');
+  });
+
+  it.each([
+    ['start=2026-01-31T08:00:00Z&count=5', 'start', '2026-01-31T08:00:00Z', 'none beside closes_'],
+    ['start=2026-01-31T05:00:00Z', 'start.0', '2026-01-31T05:00:00Z', 'that time is past'],
+    [
+      'closes_before_min=60&count=2&every_min=7',
+      'every_min',
+      7,
+      'a multiple of the block of 15 min',
+    ],
+    ['horizon_h=0.3', 'horizon_h', 0.3, 'a multiple of the block of 0.25 h'],
+    ['horizon_h=60', 'horizon_h', 60, 'at most 50 h: 200 blocks'],
+    ['power_MW=1,1.1,1.2,1.3,1.4&count=12', 'power_MW x start', 60, 'at most 48 together'],
+    [
+      'power_MW=1,1.1,1.2,1.3&count=8&certainty=0.5,0.6,0.7,0.8,0.9,0.95',
+      'power_MW x start x blocks x certainty',
+      expect.any(Number),
+      'at most 24000 together: fewer of them, longer blocks or a shorter horizon',
+    ],
+  ])('names what is wrong with %s in its own words', async (query, field, value, expected) => {
+    const { get } = await app();
+    const asked = query.includes('power_MW') ? query : `power_MW=1&${query}`;
+    const answer = await get(`${URL}?${asked}`);
+    expect(answer.statusCode).toBe(400);
+    const { error } = answer.json();
+    expect([error.field, error.value]).toEqual([field, value]);
+    expect(error.expected).toContain(expected);
+  });
+
+  it('answers once what is asked twice, without noise of the arithmetic', async () => {
+    const { get } = await app();
+    const start = '2026-01-31T08:00:00Z';
+    const query = `power_MW=1.8,1.1,1.8&start=${start},${start}&certainty=0.9,0.5,0.9`;
+    const answer = await get(`${URL}?${query}`);
+    const { offers, certainties } = answer.json();
+    expect(certainties).toEqual([0.9, 0.5]);
+    expect(offers.map((offer: { power_MW_el: number }) => offer.power_MW_el)).toEqual([1.8, 1.1]);
+    const figures = answer.body.match(/"\w+_(MWh_el|MW_el)":[\d.e-]+/g) ?? [];
+    expect(figures.length).toBeGreaterThan(20);
+    for (const figure of figures) {
+      const digits = figure
+        .split(':')[1]!
+        .replace(/e.*/, '')
+        .replace(/^0\.0*|\./g, '');
+      expect(digits.length, figure).toBeLessThanOrEqual(9);
+    }
   });
 });
 

@@ -3,7 +3,7 @@ import { describe, expect, it } from 'vitest';
 import type { UnitDefinition } from '../../../src/core/definitions.js';
 import { commandOf } from '../../../src/core/plan/command.js';
 import { energyBetween } from '../../../src/core/plan/course.js';
-import type { OffersAsk } from '../../../src/core/plan/offerAsk.js';
+import { type OffersAsk, takesLong } from '../../../src/core/plan/offerAsk.js';
 import { type Offer, offersOf } from '../../../src/core/plan/offers.js';
 import { createOutlook } from '../../../src/core/plan/outlook.js';
 import { firstBreaks, spreadOf } from '../../../src/core/plan/spread.js';
@@ -16,6 +16,7 @@ const LEAST = unit.limits.discharge.power_min_W;
 const MOST = unit.limits.discharge.power_max_W;
 const CERTAINTIES = [0.5, 0.8, 0.9, 0.99];
 const SEED = 4;
+const STAND = { mode: 'stand' as const, power_W: 0 };
 /** Of the estimate: see contextOf. */
 const NOW_MS = 180_000;
 const full = contextOf({ hot: 0.85, cold: 0.85 });
@@ -390,6 +391,29 @@ describe('prices of being wrong', () => {
   });
 });
 
+describe('a question that asks twice', () => {
+  it('is answered once', () => {
+    const twice = {
+      powers_W: [60e3, 60e3],
+      starts_ms: [HOUR_MS, HOUR_MS],
+      certainties: [0.9, 0.9],
+    };
+    const offer = only(offersOf(full, ask({ ...twice, horizon_s: 1800 })));
+    expect(offer.at.map(({ certainty }) => certainty)).toEqual([0.9]);
+  });
+
+  it('takes long with many offers or a long plan, by what is different', () => {
+    const legs = Array.from({ length: 9 }, () => ({ ...STAND, from_ms: 0, to_ms: 1 }));
+    const many = Array.from({ length: 5 }, (_, i) => (i + 1) * HOUR_MS);
+    const powers_W = [1e4, 2e4, 3e4, 4e4, 5e4];
+    expect(takesLong(ask({ legs }))).toBe(true);
+    expect(takesLong(ask({ powers_W, starts_ms: many }))).toBe(true);
+    expect(takesLong(ask({ powers_W, starts_ms: [...many.slice(1), ...many.slice(1)] }))).toBe(
+      false,
+    );
+  });
+});
+
 describe('a wrong question', () => {
   it.each([
     [{ powers_W: [-1] }, /powers_W\[0\] = -1: expected a finite number above 0/],
@@ -410,6 +434,17 @@ describe('a wrong question', () => {
     [
       { legs: [{ mode: 'stand' as const, power_W: 0, from_ms: NOW_MS - 1, to_ms: HOUR_MS }] },
       /legs\[0\].from_ms = "1970-01-01T00:02:59.999Z": expected .*00:03:00Z or later: that time is past/,
+    ],
+    [{ horizon_s: 201 * 900 }, /horizon_s = 180900: expected at most 180000 s: 200 blocks/],
+    [
+      {
+        legs: Array.from({ length: 49 }, () => ({
+          ...STAND,
+          from_ms: HOUR_MS,
+          to_ms: 2 * HOUR_MS,
+        })),
+      },
+      /legs = 49: expected at most 48 legs/,
     ],
     [{ gate: { closes_before_s: 0, count: 2, every_s: 900 } }, /expected none beside a gate/],
   ])('%j is answered with field, value and what would be right', (over, said) => {

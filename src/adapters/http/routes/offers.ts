@@ -26,12 +26,13 @@ async function answerOffers(
   service: PlantService,
   now: UnitNow,
   body: z.output<typeof offersBody>,
+  of: 'query' | 'body',
 ) {
   const { unit } = now;
   const estimate = requireEstimate(now, body.stale);
   const now_ms = Date.parse(estimate.time);
   const asked_ms = now_ms + (now.age_s ?? 0) * 1000;
-  const ask = offersAsk(unit, body, now_ms, asked_ms);
+  const ask = offersAsk(unit, body, now_ms, asked_ms, of);
   const question = { kind: 'offers', ask } as const;
   const { head, answer } = await askPlan(service, now, body.stale, question);
   const zone = unit.limits.connection?.time_zone ?? null;
@@ -76,7 +77,7 @@ export const offerRoutes: Routes = (app, { service, tuning }) => {
     },
     async (request, reply) => {
       const now = unitOf(service, request.params.unit);
-      const table = await answerOffers(service, now, request.body);
+      const table = await answerOffers(service, now, request.body, 'body');
       reply.header('vary', 'Accept');
       if (!wantsCsv(request.body.format, request.headers.accept)) return table;
       reply.type('text/csv; charset=utf-8; header=present');
@@ -100,7 +101,7 @@ export const offerRoutes: Routes = (app, { service, tuning }) => {
     async (request, reply) => {
       const now = unitOf(service, request.params.unit);
       const { query } = request;
-      const table = await answerOffers(service, now, bodyOfQuery(query));
+      const table = await answerOffers(service, now, bodyOfQuery(query), 'query');
       reply.header('vary', 'Accept');
       if (!wantsCsv(query.format, request.headers.accept)) return table;
       reply.type('text/csv; charset=utf-8; header=present');

@@ -1,5 +1,5 @@
 import { z } from 'zod';
-import { MOST_CERTAINTIES } from '../../../core/plan/offerAsk.js';
+import { MOST_CERTAINTIES, MOST_LEGS } from '../../../core/plan/offerAsk.js';
 import { USUAL_CERTAINTIES } from '../../../core/plan/offerWords.js';
 import { staleField } from './plan.js';
 import {
@@ -115,7 +115,7 @@ export const offersBody = z.strictObject(
           to: time('When it ends'),
         }),
       )
-      .max(200, { error: 'at most 200 stretches' })
+      .max(MOST_LEGS, { error: `at most ${MOST_LEGS} legs` })
       .describe('What the unit does until each start; where nothing is planned it stands')
       .default([]),
     horizon_h: z
