@@ -99,6 +99,7 @@ export function freshSensor(): SensorMemory {
     sinceRead_K: 0,
     sinceModelled_K: 0,
     unread_K: 0,
+    assumed_ms: Number.NEGATIVE_INFINITY,
     firstRead_K: Number.NaN,
     firstRock_K: Number.NaN,
     recent_K: Number.NaN,
@@ -150,6 +151,8 @@ export interface SensorEvidence {
   readonly guessed: boolean;
   /** Gas flows: what stands in a front is passed by it. */
   readonly flowing: boolean;
+  /** Gas flows in at a temperature that nothing measures: how the model moves the rock is a guess. */
+  readonly inletAssumed?: boolean;
   /** Temperature of the gas that enters at the top, where this is its topmost sensor; else NaN [K]. */
   readonly topGas_K: number;
 }

@@ -21,6 +21,8 @@ export interface Movement {
   sinceModelled_K: number;
   /** Steps of the rock by the model in scans without a reading, since the last one [K]. */
   unread_K: number;
+  /** When gas last flowed in at a temperature that nothing measured. */
+  assumed_ms: number;
   /** Reading and rock when another type's table first explained the reading [K]; NaN while none does. */
   firstRead_K: number;
   firstRock_K: number;
@@ -42,8 +44,10 @@ export function followMovement(
     readonly value_K: number;
     readonly predicted_K: number;
     readonly sigma_K: number;
+    readonly inletAssumed?: boolean;
   },
 ): void {
+  if (evidence.inletAssumed) memory.assumed_ms = evidence.time_ms;
   // What the gas does to a junction when its flow changes is not the rock's movement.
   if (evidence.time_ms < memory.unsettled_ms) {
     memory.read_K = memory.modelled_K = 0;
@@ -73,6 +77,11 @@ export function followMovement(
   }
   memory.before_K = evidence.value_K;
   memory.unread_K = 0;
+}
+
+/** The model's movement rests on an inlet that is measured, for as long as sums of movement last. */
+export function isMovementKnown(memory: Movement, time_ms: number): boolean {
+  return !(time_ms - memory.assumed_ms < FADE_S * 1000);
 }
 
 /** The reading has followed the rock where that moved: within a third, as fronts come early or late. */

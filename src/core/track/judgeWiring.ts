@@ -1,6 +1,6 @@
 import type { SensorVerdict } from '../estimate.js';
 import { isBelieved, rename, type SensorEvidence, type SensorMemory } from './judgeMemory.js';
-import { isNoOffset, mirrored, misreadTypes } from './judgeMovement.js';
+import { isMovementKnown, isNoOffset, mirrored, misreadTypes } from './judgeMovement.js';
 
 /** Verdicts whose cause shows only where the rock moves: they end only there, too. */
 export const WIRING: readonly (SensorVerdict | null)[] = ['reversed', 'swapped', 'wrong_type'];
@@ -26,7 +26,8 @@ export function judgeWiring(
   const { value_K: value, predicted_K: rock, sigma_K: sigma, time_ms } = evidence;
   // A drift that goes on may run against the rock by chance.
   const slow = verdict === 'drifting' && memory.beyond_s > 0;
-  const moving = !slow || time_ms - memory.since_ms < DRIFT_MS;
+  const moving =
+    (!slow || time_ms - memory.since_ms < DRIFT_MS) && isMovementKnown(memory, time_ms);
   const noise = evidence.noiseSigma_K ?? 0;
   const mirror = mirrored(memory, value, rock, evidence.deadband_K, sigma, noise, moving);
   memory.miswired = mirror === 'yes' ? memory.miswired + 1 : 0;

@@ -58,6 +58,7 @@ export function judgeAll(
       movesAlike: movesAlike(state, work, c),
       guessed: guessLeft(memoryOf(state, c), drive) > 0,
       flowing: drive !== null && drive.massFlux_kg_m2s !== 0,
+      inletAssumed: drive !== null && drive.massFlux_kg_m2s !== 0 && drive.inletSigma_K > 0,
       topGas_K: topGas(model, state, c, drive),
     };
     return judgeSensor(memoryOf(state, c), evidence);

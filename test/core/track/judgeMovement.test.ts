@@ -8,6 +8,7 @@ import {
 import { freshSensor } from '../../../src/core/track/judge.js';
 import {
   followMovement,
+  isMovementKnown,
   isNoOffset,
   mirrored,
   misread,
@@ -37,6 +38,24 @@ function follow(path: readonly number[], read: (rock: number, n: number) => numb
 /** The foot of a front arrives: from a plateau by `by` K within the hour. */
 const foot = (from: number, by: number): number[] =>
   Array.from({ length: 61 }, (_, n) => from + by * (n / 60) ** 2);
+
+describe('movement by the model alone', () => {
+  it('is no evidence for three hours after gas came in that nothing measured', () => {
+    const memory = freshSensor();
+    expect(isMovementKnown(memory, 0)).toBe(true);
+    const scan = { dt_s: 60, value_K: 300, predicted_K: 300, sigma_K: SIGMA };
+    const hour = 3600_000;
+    for (let n = 0; n <= 10 * 60; n++) {
+      // The inlet is silent within the third hour.
+      const inletAssumed = n >= 120 && n < 180;
+      followMovement(memory, { ...scan, time_ms: n * 60_000, inletAssumed });
+      memory.expected_K = 300;
+      const last = Math.min(n, 179) * 60_000;
+      const expected = n < 120 || n * 60_000 - last >= 3 * hour;
+      expect(isMovementKnown(memory, n * 60_000), `minute ${n}`).toBe(expected);
+    }
+  });
+});
 
 describe('reversed wires', () => {
   it('are told by a movement against the rock, whatever the temperature of the cold junction', () => {
