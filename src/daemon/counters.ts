@@ -29,6 +29,7 @@ const OWN_COUNTS = [
   'unconfigured',
   'questions',
   'offers_kept',
+  'offers_removed',
   'estimates_thinned',
   'estimates_not_forwarded',
 ] as const;

@@ -62,8 +62,9 @@ export class Housekeeping {
     const { site, history, journal, clock, counters, notices, forwarded } = this.options;
     const now_ms = Math.floor(clock.now());
     try {
-      const { estimates, not_forwarded } = history.retain(now_ms, forwarded());
+      const { estimates, offers, not_forwarded } = history.retain(now_ms, forwarded());
       counters.add('estimates_thinned', estimates);
+      counters.add('offers_removed', offers);
       counters.add('estimates_not_forwarded', not_forwarded);
       const old = journal.seqBefore(now_ms - site.store.keep_readings_days * DAY_MS);
       const covered = history.checkpoints.coveredSeq(site.units.map((unit) => unit.id));

@@ -11,8 +11,8 @@ interface SummaryRow {
   summary: string;
 }
 
-/** Newest tables that are kept of a unit; each takes some tens of kB. */
-export const MOST_KEPT = 10_000;
+/** Newest tables that are kept of a unit, and the bytes that they may take together. */
+export const MOST_KEPT = { tables: 10_000, bytes: 200e6 };
 
 /**
  * Answered offer tables. What was once offered stays as it was: a trigger of the database refuses to
@@ -43,14 +43,24 @@ export class Offers {
     }
   }
 
-  /** Of a unit and a span of asking, newest first, at most `most`. */
-  between(unit: string, from_ms: number, to_ms: number, most: number): KeptOffers[] {
+  /**
+   * Of a unit and a span of asking, newest first, at most `most`.
+   *
+   * @param below only tables with a lower number, to go on from the last one had
+   */
+  between(
+    unit: string,
+    from_ms: number,
+    to_ms: number,
+    most: number,
+    below = Number.MAX_SAFE_INTEGER,
+  ): KeptOffers[] {
     const rows = this.database
       .prepare(
         `SELECT no, asked, time, summary FROM offers
-         WHERE unit = ? AND asked BETWEEN ? AND ? ORDER BY no DESC LIMIT ?`,
+         WHERE unit = ? AND asked BETWEEN ? AND ? AND no < ? ORDER BY no DESC LIMIT ?`,
       )
-      .all(unit, from_ms, to_ms, most) as SummaryRow[];
+      .all(unit, from_ms, to_ms, below, most) as SummaryRow[];
     return rows.map(({ no, asked: asked_ms, time: time_ms, summary }) => ({
       ...{ no, asked_ms, time_ms },
       ...(JSON.parse(summary) as Pick<KeptOffers, 'asked' | 'offers'>),

@@ -9,6 +9,8 @@ const STEP_MS = DAY_MS;
 export interface RetentionCounts {
   readonly estimates: number;
   readonly events: number;
+  /** Kept offer tables that were too old, too many or too large together. */
+  readonly offers: number;
   /** Deleted although the time-series database had not yet taken them over. */
   readonly not_forwarded: number;
 }
@@ -34,11 +36,11 @@ export function applyRetention(
       .pluck()
       .get(end, limit) as number;
     let estimates = remove(database, 'estimates', end);
-    for (const table of ['dispatch', 'profiles', 'offers']) remove(database, table, end);
-    removeSurplusOffers(database);
+    for (const table of ['dispatch', 'profiles']) remove(database, table, end);
+    const offers = remove(database, 'offers', end) + removeSurplusOffers(database);
     const events = remove(database, 'events', end);
     estimates += thinEstimates(database, store, now_ms, limit);
-    return { estimates, events, not_forwarded };
+    return { estimates, events, offers, not_forwarded };
   })();
 }
 
@@ -46,17 +48,28 @@ function remove(database: Database, table: string, end_ms: number): number {
   return database.prepare(`DELETE FROM ${table} WHERE time < ?`).run(end_ms).changes;
 }
 
-/** Clients may ask without end: beyond so many of a unit the oldest go, whatever their age. */
-function removeSurplusOffers(database: Database): void {
+/**
+ * Clients may ask without end: beyond so many tables or bytes of a unit the oldest go, whatever their
+ * age.
+ *
+ * @returns how many went
+ */
+export function removeSurplusOffers(database: Database, most = MOST_KEPT): number {
   const units = database.prepare('SELECT DISTINCT unit FROM offers').pluck().all() as string[];
+  let removed = 0;
   for (const unit of units) {
-    database
+    removed += database
       .prepare(
         `DELETE FROM offers WHERE unit = @unit AND no <= (
-           SELECT no FROM offers WHERE unit = @unit ORDER BY no DESC LIMIT 1 OFFSET @most)`,
+           SELECT max(no) FROM (
+             SELECT no, row_number() OVER newest AS tables,
+               sum(octet_length(content) + octet_length(summary)) OVER newest AS bytes
+             FROM offers WHERE unit = @unit WINDOW newest AS (ORDER BY no DESC))
+           WHERE tables > @tables OR bytes > @bytes)`,
       )
-      .run({ unit, most: MOST_KEPT });
+      .run({ unit, ...most }).changes;
   }
+  return removed;
 }
 
 function thinEstimates(

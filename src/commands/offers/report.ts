@@ -16,6 +16,8 @@ interface Report {
   readonly from: string;
   readonly to: string;
   readonly tested_by: string;
+  readonly tables: number;
+  readonly older_left_out: boolean;
   readonly p90: Kept;
   readonly p50: Kept;
   readonly tested: readonly {
@@ -47,6 +49,9 @@ export async function reportText(options: OffersOptions): Promise<string> {
   const header = ['no', 'begins', 'MW_el', 'MWh_el p90', 'MWh_el p50', 'MWh_el given', 'ended by'];
   return [
     `${report.unit}: offers asked from ${report.from} to ${report.to}`,
+    ...(report.older_left_out
+      ? [`Only the newest ${report.tables} tables: ask for less time to see older ones.`]
+      : []),
     ...(rows.length === 0 ? ['No offer was put to the test.'] : [table(header, rows)]),
     line('p90', report.p90),
     line('p50', report.p50),

@@ -1,6 +1,7 @@
 import type { UnitDefinition } from '../definitions.js';
 import type { Quantiles } from '../estimate.js';
 import { type Discharge, type DoneRow, dischargesIn, GAP_MS } from './discharges.js';
+import { DoneSeries } from './doneSeries.js';
 import type { PlannedLeg } from './offerAsk.js';
 
 /** An offer that was answered and kept. */
@@ -51,6 +52,9 @@ export interface Kept {
 }
 
 export interface OfferReport {
+  /** Tables that were looked at: those asked last, where there are more. */
+  readonly tables: number;
+  readonly older_left_out: boolean;
   readonly p90: Kept;
   readonly p50: Kept;
   readonly tested: TestedOffer[];
@@ -75,18 +79,33 @@ const PLAN_SHARE = 0.9;
  * before it counts: the others would count the same discharge again.
  *
  * @param rows stored scans ascending in time, from the first offer's asking on
+ * @param older_left_out whether there are tables from before, which are not among the offers
  */
 export function offerReport(
   unit: UnitDefinition,
   offers: readonly PastOffer[],
   rows: readonly DoneRow[],
+  older_left_out = false,
 ): OfferReport {
+  const run = reporting(unit, offers, rows, older_left_out);
+  for (let next = run.next(); ; next = run.next()) if (next.done) return next.value;
+}
+
+/** As `offerReport`, in slices: each offer is a step, for who must not be kept from others. */
+export function* reporting(
+  unit: UnitDefinition,
+  offers: readonly PastOffer[],
+  rows: readonly DoneRow[],
+  older_left_out = false,
+): Generator<void, OfferReport> {
   const discharges = dischargesIn(unit, rows);
-  const last_ms = rows[rows.length - 1]?.time_ms ?? Number.NEGATIVE_INFINITY;
+  const done = new DoneSeries(rows);
+  yield;
   const untested = Object.fromEntries(UNTESTED.map((why) => [why, 0])) as Record<Untested, number>;
   const byRun = new Map<Discharge, PastOffer>();
   for (const offer of [...offers].sort((a, b) => a.asked_ms - b.asked_ms || a.no - b.no)) {
-    const found = runOf(offer, discharges, rows, last_ms);
+    const found = runOf(offer, discharges, done);
+    yield;
     if (typeof found === 'string') untested[found]++;
     else {
       if (byRun.has(found)) untested.superseded++;
@@ -111,18 +130,20 @@ export function offerReport(
     if (of === 0) return { kept, of, meant, share: null, interval: null };
     return { kept, of, meant, share: kept / of, interval: wilson(kept, of) };
   };
-  return { p90: count('p90', 0.9), p50: count('p50', 0.5), tested, untested };
+  const tables = new Set(offers.map((offer) => offer.no)).size;
+  const shares = { p90: count('p90', 0.9), p50: count('p50', 0.5) };
+  return { tables, older_left_out, ...shares, tested, untested };
 }
 
 /** The discharge that puts an offer to the test, or why there is none. */
 function runOf(
   offer: PastOffer,
   discharges: readonly Discharge[],
-  rows: readonly DoneRow[],
-  last_ms: number,
+  done: DoneSeries,
 ): Discharge | Untested {
   if (offer.refused) return 'refused';
   const { begins_ms } = offer;
+  const { last_ms } = done;
   if (last_ms < begins_ms + BEGINS_WITHIN_MS) return 'not_yet';
   const run = discharges.find((one) => Math.abs(one.from_ms - begins_ms) <= BEGINS_WITHIN_MS);
   if (run === undefined) return 'not_run';
@@ -130,50 +151,33 @@ function runOf(
   if (run.to_ms >= last_ms) return 'not_yet';
   if (!run.whole) return 'readings_missing';
   if (run.ended_by === null) return 'stopped_before_a_rule';
-  const followed = followedPlan(offer, rows, Math.min(begins_ms, run.from_ms));
+  const followed = followedPlan(offer, done, Math.min(begins_ms, run.from_ms));
   if (followed === null) return 'readings_missing';
   return followed ? run : 'plan_not_followed';
 }
 
 /** null where too few scans are stored to tell. */
-function followedPlan(
-  offer: PastOffer,
-  rows: readonly DoneRow[],
-  until_ms: number,
-): boolean | null {
-  // Within a quarter of an hour of each change the machine may still be on its way.
+function followedPlan(offer: PastOffer, done: DoneSeries, until_ms: number): boolean | null {
   const { asked_ms, legs } = offer;
-  const edges = [asked_ms, until_ms, ...legs.flatMap((leg) => [leg.from_ms, leg.to_ms])];
-  const near = (ms: number): boolean => edges.some((edge) => Math.abs(ms - edge) < GAP_MS);
-  const own = rows.slice(firstFrom(rows, asked_ms + 1), firstFrom(rows, until_ms));
-  const told = own.filter((row) => !near(row.time_ms));
   // Asked shortly before: there is nothing to follow.
   if (until_ms - asked_ms <= 2 * GAP_MS) return true;
-  let at = asked_ms;
-  for (const row of own) {
-    if (row.time_ms - at > GAP_MS) return null;
-    at = row.time_ms;
-  }
-  if (until_ms - at > GAP_MS) return null;
-  const as = told.filter((row) => {
-    const leg = legs.find((one) => one.from_ms <= row.time_ms && row.time_ms < one.to_ms);
-    if (leg === undefined || leg.mode === 'stand' || leg.power_W === 0) return row.mode === 'stand';
-    const share = Math.abs(row.given_MW_el) / (leg.power_W / 1e6);
-    return row.mode === leg.mode && Math.abs(share - 1) <= 2 * POWER_WITHIN;
+  if (!done.isWhole(asked_ms, until_ms)) return null;
+  const within = (ms: number): number => Math.min(until_ms, Math.max(asked_ms, ms));
+  const edges = legs.flatMap((leg) => [within(leg.from_ms), within(leg.to_ms)]);
+  const all = [asked_ms, ...edges, until_ms].sort((a, b) => a - b);
+  let told = 0;
+  let as = 0;
+  all.slice(1).forEach((to_ms, i) => {
+    const from_ms = all[i] as number;
+    // Within a quarter of an hour of each change the machine may still be on its way.
+    const [from, to] = [from_ms + GAP_MS, to_ms - GAP_MS];
+    if (to < from) return;
+    const leg = legs.find((one) => one.from_ms <= from && from < one.to_ms);
+    const stands = leg === undefined || leg.mode === 'stand' || leg.power_W === 0;
+    told += done.scans(from, to);
+    as += stands ? done.stood(from, to) : done.ran(leg, from, to);
   });
-  return as.length >= PLAN_SHARE * told.length;
-}
-
-/** Index of the first row at or after a time. */
-function firstFrom(rows: readonly DoneRow[], time_ms: number): number {
-  let low = 0;
-  let high = rows.length;
-  while (low < high) {
-    const middle = (low + high) >> 1;
-    if ((rows[middle] as DoneRow).time_ms < time_ms) low = middle + 1;
-    else high = middle;
-  }
-  return low;
+  return as >= PLAN_SHARE * told;
 }
 
 /** z of a two-sided 95 % interval. */

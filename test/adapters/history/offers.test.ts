@@ -3,6 +3,7 @@ import SQLite from 'better-sqlite3';
 import { afterEach, describe, expect, it } from 'vitest';
 import { openDatabase } from '../../../src/adapters/history/database.js';
 import { History } from '../../../src/adapters/history/history.js';
+import { removeSurplusOffers } from '../../../src/adapters/history/retention.js';
 import { HISTORY_SCHEMA } from '../../../src/adapters/history/schema.js';
 import type { OffersAsk } from '../../../src/core/plan/offerAsk.js';
 import { offerTable } from '../../../src/core/plan/offerTable.js';
@@ -93,6 +94,28 @@ describe('kept offers', () => {
     expect(keep(own, T + 102 * DAY)).toBe(3);
   });
 
+  it('beyond so many tables or bytes of a unit the oldest go, and are counted', () => {
+    const folder = temporaryFolder('offers');
+    const own = opened(folder);
+    for (let i = 0; i < 6; i++) keep(own, T + i);
+    own.stop();
+    const database = new SQLite(join(folder, 'history.sqlite'));
+    const numbers = () => database.prepare('SELECT no FROM offers ORDER BY no').pluck().all();
+    expect(removeSurplusOffers(database, { tables: 6, bytes: 1e9 })).toBe(0);
+    expect(removeSurplusOffers(database, { tables: 4, bytes: 1e9 })).toBe(2);
+    expect(numbers()).toEqual([3, 4, 5, 6]);
+    const size = database
+      .prepare('SELECT length(content) + length(summary) FROM offers WHERE no = 6')
+      .pluck()
+      .get() as number;
+    // Room for two, each of about the same size.
+    expect(removeSurplusOffers(database, { tables: 4, bytes: 2.5 * size })).toBe(2);
+    expect(numbers()).toEqual([5, 6]);
+    database.close();
+    const counts = opened(folder).retain(T + 101 * DAY, Number.POSITIVE_INFINITY);
+    expect(counts.offers).toBe(2);
+  });
+
   it('are added to a history that was written before there were any', () => {
     const folder = temporaryFolder('offers');
     const file = join(folder, 'history.sqlite');
@@ -127,5 +150,14 @@ describe('the report from the stored scans', () => {
     });
     expect(report.tested[0]!.delivered_MWh_el).toBeCloseTo(4, 1);
     expect((await reportOffers(own, unit, T + DAY, T + 2 * DAY)).p90.of).toBe(0);
+    expect(report).toMatchObject({ tables: 1, older_left_out: false });
+  });
+
+  it('takes the newest tables, page by page, and says where older ones are left out', async () => {
+    const own = opened(temporaryFolder('offers'));
+    for (let i = 0; i < 130; i++) keep(own, T + i * 1000);
+    const asked = (most: number) => reportOffers(own, unit, T, T + DAY, most);
+    expect(await asked(130)).toMatchObject({ tables: 130, older_left_out: false });
+    expect(await asked(129)).toMatchObject({ tables: 129, older_left_out: true });
   });
 });

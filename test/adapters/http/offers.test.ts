@@ -245,6 +245,16 @@ describe('kept offers', () => {
     expect([none.statusCode, none.json().error.code]).toEqual([404, 'unknown_offers']);
   });
 
+  it('say where older ones are left out', async () => {
+    const own = await app();
+    for (let i = 0; i < 2; i++) await post(own, BODY);
+    expect((await own.get(`${URL}/history`)).json().older_left_out).toBe(false);
+    const [{ summary, answer }] = own.plant.kept as [(typeof own.plant.kept)[0]];
+    while (own.plant.kept.length < 101) own.plant.kept.push({ summary, answer });
+    const list = offersHistorySchema.strict().parse((await own.get(`${URL}/history`)).json());
+    expect([list.tables.length, list.older_left_out]).toEqual([100, true]);
+  });
+
   it('are reported against what was delivered', async () => {
     const own = await app();
     const empty = offersReportSchema.strict().parse((await own.get(`${URL}/report`)).json());
@@ -253,11 +263,14 @@ describe('kept offers', () => {
     own.plant.report = {
       p90: { kept: 9, of: 10, meant: 0.9, share: 0.9, interval: [0.6, 0.98] },
       p50: { kept: 5, of: 10, meant: 0.5, share: 0.5, interval: [0.24, 0.76] },
+      tables: 2000,
+      older_left_out: true,
       tested: [],
       untested: empty.untested,
     };
     const report = offersReportSchema.strict().parse((await own.get(`${URL}/report`)).json());
     expect(report.p90.interval).toEqual([0.6, 0.98]);
+    expect(report).toMatchObject({ tables: 2000, older_left_out: true });
     const wrong = await own.get(`${URL}/report?from=2026-02-02T00:00:00Z&to=2026-02-01T00:00:00Z`);
     expect([wrong.statusCode, wrong.json().error.field]).toEqual([400, 'from']);
   });

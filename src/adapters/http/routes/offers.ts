@@ -125,13 +125,16 @@ export const offerRoutes: Routes = (app, { service, tuning }) => {
     async (request) => {
       const now = unitOf(service, request.params.unit);
       const { from, to } = askedSpan(request.query, now);
-      const tables = service.keptOffers(now.unit.id, from, to, MOST_TABLES);
+      // One more, to tell whether there are more.
+      const found = service.keptOffers(now.unit.id, from, to, MOST_TABLES + 1);
+      const tables = found.slice(0, MOST_TABLES);
       return {
         ...{ unit: now.unit.id, from: at(from), to: at(to) },
         tables: tables.map(({ no, asked_ms, time_ms, asked, offers }) => ({
           ...{ no, asked: at(asked_ms), time: at(time_ms), block_s: asked.block_s },
           offers: [...offers],
         })),
+        older_left_out: found.length > MOST_TABLES,
       };
     },
   );
@@ -186,6 +189,7 @@ export const offerRoutes: Routes = (app, { service, tuning }) => {
       });
       return {
         ...{ unit: now.unit.id, from: at(from), to: at(to), tested_by: TESTED_BY },
+        ...{ tables: report.tables, older_left_out: report.older_left_out },
         p90: interval(report.p90),
         p50: interval(report.p50),
         tested: report.tested.map(({ asked_ms, begins_ms, ...one }) => ({

@@ -114,6 +114,7 @@ export const offersHistorySchema = z.object({
       }),
     )
     .describe('Newest first, at most 100; without their blocks'),
+  older_left_out: z.boolean().describe('true: there are more in that time; ask for less of it'),
 });
 
 const keptShare = z.object({
@@ -129,6 +130,8 @@ export const offersReportSchema = z.object({
   from: timeSchema,
   to: timeSchema,
   tested_by: z.string().describe('When an offer counts as put to the test'),
+  tables: z.int().describe('Kept tables looked at: the newest 2000'),
+  older_left_out: z.boolean().describe('true: there are more in that time; ask for less of it'),
   p90: keptShare,
   p50: keptShare,
   tested: z.array(
