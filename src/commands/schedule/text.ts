@@ -50,9 +50,18 @@ function unmetText({ unmet }: Schedule): string[] {
   return ['What machine, connection or outages do not allow:', table(header, rows)];
 }
 
-function nearestText({ nearest, certainty }: Schedule): string {
+const NO_NEAREST: Readonly<Record<NonNullable<Schedule['nearest_reason']>, string>> = {
+  not_allowed: 'machine, connection and outages leave nothing of it',
+  nothing_holds: 'not even a minute of it at the least power',
+  not_found: 'none was found in the tries made',
+};
+
+function nearestText({ nearest, nearest_reason, certainty }: Schedule): string {
   const sure = percent(certainty);
-  if (nearest === null) return `No schedule near it was found that holds with ${sure}.`;
+  if (nearest === null) {
+    const why = NO_NEAREST[nearest_reason ?? 'not_found'];
+    return `No schedule near it holds with ${sure}: ${why}.`;
+  }
   const { factor_discharge, factor_charge, drawn_in, taken_out, probability } = nearest;
   const changes = [
     ...(factor_discharge < 1 ? [`discharging powers x ${factor_discharge.toFixed(4)}`] : []),

@@ -27,14 +27,18 @@ export interface DrawnIn {
   readonly end_s: number;
 }
 
+const DIRECTIONS = ['charge', 'discharge'] as const satisfies readonly Direction[];
 /** Where no least power is set a factor goes down to this. */
 const LEAST_FACTOR = 0.01;
 /** Of a factor's range, and at least a minute of a run. */
 const FINEST = 1000;
-/** Full evaluations, the one of what was asked among them, and marches between two of them. */
-const USUAL = { evaluations: 4, tries: 80 };
+/**
+ * Full evaluations, the one of what was asked among them, marches between two of them, and further
+ * evaluations where these find nothing that is close enough.
+ */
+const USUAL = { evaluations: 4, tries: 80, more: 9 };
 /** The same where an evaluation takes seconds. */
-const LONG = { evaluations: 3, tries: 40 };
+const LONG = { evaluations: 3, tries: 40, more: 3 };
 /** Running time of a plan beyond which that is so [s]. */
 const LONG_S = 48 * 3600;
 /** Margin at which no better is looked for, and beyond which it tells only its sign [sigmas]. */
@@ -44,6 +48,17 @@ const TOLD = 3;
 const TURNS = 3;
 /** Share of the risk by which what is found may be surer than asked for. */
 const SURER = 0.3;
+/** Where marches find nothing that holds: factors less this are evaluated, then four times that less. */
+const FIRST_STEP = 1 / FINEST;
+const STEP_GROWS = 4;
+
+/** Why there is no nearest schedule. */
+export const NEAREST_REASONS = ['not_allowed', 'nothing_holds', 'not_found'] as const;
+/**
+ * `not_allowed`: machine, connection and outages leave nothing of what was asked. `nothing_holds`: not
+ * even a minute of it at the least power. `not_found`: none in the tries that are made.
+ */
+export type NearestReason = (typeof NEAREST_REASONS)[number];
 
 /**
  * The nearest schedule that holds with a certainty. Nearest means: one common factor, the greatest
@@ -55,33 +70,31 @@ const SURER = 0.3;
  *
  * Found by bisection on one cheap march per try with the spread of a full evaluation (see trial), then
  * evaluated in full; where that falls short of the certainty or is much surer, sought anew from there.
+ * Where marches do not tell (the greatest flow may be needed at once or never, a per mille of the
+ * power apart) factors between what holds and what does not are evaluated in full (see closer).
  *
  * @param evaluation of the legs as they were asked for
- * @returns null where nothing was found that holds, but for standing
+ * @returns why there is none where nothing was found that holds, but for standing
  */
 export function nearestLegs(
   planner: Planner,
   legs: readonly Leg[],
   evaluation: Evaluation,
   certainty: number,
-): NearestLegs | null {
+): NearestLegs | NearestReason {
   const asked: Sought = { legs, factor: { charge: 1, discharge: 1 }, drawn_in: [] };
   const { episodes } = evaluation.course;
   const runs_s = episodes.reduce((sum, { from_s, held_s }) => sum + held_s - from_s, 0);
   const most = runs_s > LONG_S ? LONG : USUAL;
   let own = evaluation;
   let found = asked;
-  let best: NearestLegs | null = null;
+  let best: Judged | null = null;
+  let failed: Judged | null = null;
   for (let n = 0; ; n++) {
-    const probability = holding(own.course.episodes, own.first_s);
-    const some = energyOf(found.legs) > 0 || energyOf(legs) === 0;
-    const holds = some && probability >= certainty && own.command.unmet.length === 0;
-    const changed = found.factor.discharge < 1 || found.factor.charge < 1;
-    if (holds && (best === null || isNearer(found, best))) {
-      const taken_out = found.legs.length > legs.length || tookOut(found, legs);
-      best = { ...found, taken_out, probability };
-    }
-    if (holds && (!changed || probability - certainty <= SURER * (1 - certainty))) break;
+    const judged = judge(found, own, legs, certainty);
+    if (judged.holds && (best === null || isNearer(found, best))) best = judged;
+    if (!judged.holds && (failed === null || isNearer(failed, found))) failed = judged;
+    if (judged.holds && (!isChanged(found) || isClose(judged, certainty))) break;
     if (n === most.evaluations - 1) break;
     // A little above, so that cheap and full evaluation seldom disagree.
     const target = certainty + (1 - certainty) * 0.02 * 3 ** n;
@@ -89,6 +102,92 @@ export function nearestLegs(
     if (next === null || (n > 0 && sameFactors(next, found))) break;
     found = next;
     own = planner.evaluate(planner.command(found.legs));
+  }
+  if (failed !== null && (best === null || (isChanged(best) && !isClose(best, certainty)))) {
+    best = closer(planner, legs, certainty, { best, failed, more: most.more });
+  }
+  if (best !== null) {
+    const { factor, drawn_in, probability } = best;
+    const taken_out = best.legs.length > legs.length || tookOut(best, legs);
+    return { legs: best.legs, factor, drawn_in, taken_out, probability };
+  }
+  if (energyOf(withoutUnmet(planner, legs)) === 0) return 'not_allowed';
+  return energyOf(found.legs) === 0 ? 'nothing_holds' : 'not_found';
+}
+
+/** What was sought, evaluated in full. */
+interface Judged extends Sought {
+  readonly holds: boolean;
+  readonly probability: number;
+  /** That the runs of a direction hold. */
+  readonly alone: Readonly<Record<Direction, number>>;
+}
+
+function judge(
+  found: Sought,
+  { course, first_s, command }: Evaluation,
+  asked: readonly Leg[],
+  certainty: number,
+): Judged {
+  const alone = (direction?: Direction): number => holding(course.episodes, first_s, direction);
+  const probability = alone();
+  const some = energyOf(found.legs) > 0 || energyOf(asked) === 0;
+  const holds = some && probability >= certainty && command.unmet.length === 0;
+  const each = { charge: alone('charge'), discharge: alone('discharge') };
+  return { ...found, holds, probability, alone: each };
+}
+
+const isChanged = ({ factor }: Sought): boolean => factor.discharge < 1 || factor.charge < 1;
+
+/** Whether it is no surer than it must be. */
+const isClose = ({ probability }: Judged, certainty: number): boolean =>
+  probability - certainty <= SURER * (1 - certainty);
+
+/**
+ * Between factors that hold and such that do not, by full evaluations: bisection until both are within
+ * the `FINEST` part of each other, or what holds is hardly surer than asked for. Where nothing holds
+ * yet, factors of the directions at risk are taken down first, in growing steps.
+ *
+ * @param known what holds, if anything does, and the least found that does not; how often to look
+ */
+function closer(
+  planner: Planner,
+  legs: readonly Leg[],
+  certainty: number,
+  known: { readonly best: Judged | null; readonly failed: Judged; readonly more: number },
+): Judged | null {
+  const { unit } = planner.outlook.model;
+  const { drawn_in } = known.best ?? known.failed;
+  let { best, failed } = known;
+  const at = (of: (direction: Direction) => number): Judged => {
+    const factor = { charge: of('charge'), discharge: of('discharge') };
+    const own = withoutUnmet(planner, drawIn(scale(legs, factor), drawn_in));
+    const sought = { legs: own, factor, drawn_in };
+    return judge(sought, planner.evaluate(planner.command(own)), legs, certainty);
+  };
+  const atRisk = (direction: Direction): boolean => known.failed.alone[direction] < 1;
+  let step = FIRST_STEP;
+  for (let n = 0; n < known.more; n++) {
+    const holding_: Judged | null = best;
+    const failing = failed;
+    if (holding_ === null) {
+      const next = (direction: Direction): number => {
+        const was = failing.factor[direction];
+        if (!atRisk(direction)) return was;
+        return Math.max(leastFactor(unit, legs, direction), was * (1 - step));
+      };
+      if (DIRECTIONS.every((one) => next(one) >= failing.factor[one])) return null;
+      const found = at(next);
+      if (found.holds) best = found;
+      else failed = found;
+      step *= STEP_GROWS;
+      continue;
+    }
+    const apart = DIRECTIONS.map((one) => failing.factor[one] - holding_.factor[one]);
+    if (isClose(holding_, certainty) || !apart.some((part) => part > 1 / FINEST)) break;
+    const found = at((one) => (failing.factor[one] + holding_.factor[one]) / 2);
+    if (found.holds) best = found;
+    else failed = found;
   }
   return best;
 }

@@ -7,7 +7,7 @@ import type { Course } from './course.js';
 import { type Evaluation, exceeded, holding, isAsked } from './evaluation.js';
 import type { CommandCause, Leg } from './leg.js';
 import { writtenIn } from './localTime.js';
-import { type NearestLegs, nearestLegs } from './nearest.js';
+import { type NearestLegs, type NearestReason, nearestLegs } from './nearest.js';
 import { createPlanner } from './planner.js';
 import { requireSchedule, type ScheduleAsk } from './scheduleAsk.js';
 import { firstShortfall, storesShortfall } from './shortfall.js';
@@ -101,6 +101,8 @@ export interface Schedule {
   readonly charge_left_out: number;
   /** null where none was found. */
   readonly nearest: NearestView | null;
+  /** Why there is none; null where there is one. */
+  readonly nearest_reason: NearestReason | null;
 }
 
 const J_PER_MWH = 3.6e9;
@@ -184,7 +186,8 @@ export function scheduleOf(context: PlanContext, ask: ScheduleAsk): Schedule {
       ),
     })),
     charge_left_out: Math.max(0, charges.length - MOST_POINTS),
-    nearest: nearest && nearestView(nearest, view, written),
+    nearest: typeof nearest === 'string' ? null : nearestView(nearest, view, written),
+    nearest_reason: typeof nearest === 'string' ? nearest : null,
   };
 }
 

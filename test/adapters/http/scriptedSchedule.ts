@@ -58,5 +58,6 @@ export function scriptedSchedule(ask: ScheduleAsk, now_ms: number): Schedule {
       ...{ factor_discharge: 0.9, factor_charge: 1, drawn_in: [], taken_out: true },
       probability: 0.91,
     },
+    nearest_reason: null,
   };
 }

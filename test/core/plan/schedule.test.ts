@@ -337,6 +337,44 @@ describe('the nearest schedule that holds', () => {
     expect(both.probability).toBeGreaterThanOrEqual(0.9);
   });
 
+  it.each([0.9, 0.99])(
+    'is found just below a power at which the greatest flow is needed at once, with %f',
+    (certainty) => {
+      const charge = { ...plain.limits.charge, flow_max_kg_s: 1.2 };
+      const unit = { ...plain, limits: { ...plain.limits, charge } };
+      let [holds, fails] = [60, 200];
+      const asked = (kW: number): Schedule => ask(unit, [['charge', kW, 0, 0.5]], certainty);
+      for (let n = 0; n < 12; n++) {
+        const kW = (holds + fails) / 2;
+        if (asked(kW).probability >= certainty) holds = kW;
+        else fails = kW;
+      }
+      expect(fails).toBeLessThan(200);
+      for (const kW of [fails, fails * 1.0005, fails * 1.002, fails * 1.01, fails * 1.1]) {
+        const { nearest, runs, nearest_reason } = asked(kW);
+        expect([runs[0]!.ends_by, nearest_reason]).toEqual(['flow', null]);
+        expect(nearest!.probability).toBeGreaterThanOrEqual(certainty);
+        // The greatest to a per mille of the power asked for; meter and machine shift it by another.
+        expect(Math.abs((nearest!.factor_charge * kW) / holds - 1)).toBeLessThan(0.0015);
+      }
+    },
+  );
+
+  it('is none where the stores are empty, and says why', () => {
+    const empty = planContext(unitModel(plain), watchedUnit(plain, { hot: 0.02, cold: 0.02 }, 3));
+    const { now_ms } = empty;
+    const span = { from_ms: now_ms + 3.6e6, to_ms: now_ms + 7.2e6 };
+    const blocks = [{ mode: 'discharge', power_W: 60e3, ...span } as const];
+    const found = scheduleOf(empty, { blocks, certainty: 0.9, zone: null });
+    expect(found).toMatchObject({ nearest: null, nearest_reason: 'nothing_holds' });
+    // Where nothing of it is allowed that is told instead, whatever the stores hold.
+    const shut = { charge_max_W: 0, discharge_max_W: 0, reason: 'inspection' };
+    const outages = [{ from_ms: now_ms, to_ms: now_ms + 9e6, ...shut }];
+    const unit = { ...plain, limits: { ...plain.limits, outages } };
+    const out = ask(unit, [['discharge', 60, 1, 2]]);
+    expect(out).toMatchObject({ nearest: null, nearest_reason: 'not_allowed' });
+  });
+
   it('keeps to an outage: what it does not allow is taken out', () => {
     const now = contextOf(plain).now_ms;
     const outage = {

@@ -1,6 +1,7 @@
 import { z } from 'zod';
 import { END_CAUSES } from '../../../core/estimate.js';
 import { COMMAND_CAUSES } from '../../../core/plan/leg.js';
+import { NEAREST_REASONS } from '../../../core/plan/nearest.js';
 import {
   GREATEST_CERTAINTY,
   LEAST_CERTAINTY,
@@ -174,4 +175,10 @@ export const scheduleSchema = z.object({
     })
     .nullable()
     .describe('Nearest schedule that holds at the certainty; null: none was found'),
+  nearest_reason: z
+    .enum(NEAREST_REASONS)
+    .nullable()
+    .describe(
+      'Why there is none: nothing of it is allowed, not a minute of it holds, or none was found',
+    ),
 });
