@@ -1,7 +1,7 @@
 import type { UnitDefinition } from '../core/definitions.js';
 import type { Quality } from '../core/estimate.js';
 import { answerPlan, type PlanAnswers, type PlanQuestion } from '../core/plan/ask.js';
-import { GIVEN } from '../core/plan/given.js';
+import { aheadHead } from '../core/plan/head.js';
 import type { Scan } from '../core/scan/scan.js';
 import { advance, startUnit, type UnitState } from '../core/unit.js';
 import { RockhourError, reasonOf } from '../errors.js';
@@ -29,8 +29,10 @@ export interface AheadHead {
   readonly quality: Quality | null;
   /** What every figure takes for granted. */
   readonly given?: string;
-  /** Of a daemon alone. */
   readonly valid_until?: string;
+  /** What binds what the unit can sell. */
+  readonly limits?: ReturnType<typeof aheadHead>['limits'];
+  /** Of a daemon alone. */
   readonly stale?: boolean;
 }
 
@@ -92,7 +94,7 @@ export async function stateFromRecording(options: AheadOptions): Promise<Recorde
   if (state.time_ms === null) throw nothingBefore(recording, options.at, begins_ms);
   const time = new Date(state.time_ms).toISOString();
   const age_s = at_ms === null ? 0 : (at_ms - state.time_ms) / 1000;
-  return { unit, state, head: { unit: unit.id, time, age_s, quality, given: GIVEN } };
+  return { unit, state, head: { age_s, ...aheadHead(unit, time, quality ?? 'blind') } };
 }
 
 export function nothingBefore(

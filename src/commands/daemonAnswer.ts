@@ -3,15 +3,24 @@ import { RockhourError, reasonOf } from '../errors.js';
 /** How long a daemon may take: hours are computed while it waits, in about a second. */
 const PATIENCE_MS = 30_000;
 
-/** The message of rockhour's own error body, or the start of whatever else came back. */
-function complaint(body: string): string {
+/** Refusals that say nothing of the question: who may ask, too slowly, too often. */
+const NOT_THE_QUESTION: ReadonlySet<number> = new Set([401, 403, 407, 408, 429]);
+
+/** The message of rockhour's own error body; null where another program wrote the body. */
+function ownWords(body: string): string | null {
   try {
-    const { error } = JSON.parse(body) as { error?: { message?: unknown } };
+    const { error } = JSON.parse(body) as { error?: { code?: unknown; message?: unknown } };
+    if (error?.code === 'unknown_route') return null;
     if (typeof error?.message === 'string') return error.message;
   } catch {
     // Not JSON, so not rockhour: a proxy or another server.
   }
-  return body.trim().slice(0, 200) || 'an empty body';
+  return null;
+}
+
+/** Those words, or the start of whatever else came back. */
+function complaint(body: string): string {
+  return ownWords(body) ?? (body.trim().slice(0, 200) || 'an empty body');
 }
 
 /**
@@ -19,7 +28,8 @@ function complaint(body: string): string {
  * @param base address of the daemon with its path prefix, such as http://127.0.0.1:8080
  * @param path path below it with its query
  * @param body what is posted as JSON; without it the question is a GET
- * @throws RockhourError DAEMON_UNREACHABLE, DAEMON_REFUSED, or USAGE for an address that is none
+ * @throws RockhourError DAEMON_UNREACHABLE, DAEMON_REFUSED, or USAGE for an address that is none and for
+ *   a question that the daemon finds wrong, in its words
  */
 export async function askDaemon(base: string, path: string, body?: object): Promise<unknown> {
   if (!URL.canParse(base) || !/^https?:$/.test(new URL(base).protocol)) {
@@ -48,6 +58,11 @@ export async function askDaemon(base: string, path: string, body?: object): Prom
     const inner = error instanceof Error && error.cause !== undefined ? error.cause : error;
     throw new RockhourError('DAEMON_UNREACHABLE', `${question} got no answer: ${reasonOf(inner)}`, {
       cause: error,
+    });
+  }
+  if (status >= 400 && status < 500 && !NOT_THE_QUESTION.has(status) && ownWords(text) !== null) {
+    throw new RockhourError('USAGE', complaint(text), {
+      advice: `The daemon at ${base} says so; mend the question.`,
     });
   }
   if (status !== 200) {

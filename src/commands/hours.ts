@@ -1,45 +1,40 @@
 import type { Command } from 'commander';
-import type { DispatchAnswer, Quality } from '../core/estimate.js';
+import type { DispatchAnswer } from '../core/estimate.js';
+import { aheadHead } from '../core/plan/head.js';
 import type { CommandCause } from '../core/plan/leg.js';
 import { type LimitedAnswer, limitedAnswers } from '../core/plan/limitedBy.js';
 import type { Scan } from '../core/scan/scan.js';
 import { advance, startUnit } from '../core/unit.js';
-import { RockhourError } from '../errors.js';
-import { nothingBefore, onlyUnitOf } from './aheadState.js';
+import {
+  type AheadHead,
+  type AheadOptions,
+  askAhead,
+  checkAheadOptions,
+  headLine,
+  nothingBefore,
+  onlyUnitOf,
+} from './aheadState.js';
 import { askDaemon } from './daemonAnswer.js';
 import { loadUnit } from './site.js';
 import { table } from './table.js';
 import { parsePoint_ms, parsePowers_W } from './values.js';
 import { tellCounts, walkRecording } from './walk.js';
 
-interface HoursOptions {
-  readonly config?: string;
-  readonly recording?: string;
-  readonly at?: string;
-  readonly url?: string;
-  readonly unit?: string;
+interface HoursOptions extends AheadOptions {
   readonly power: string;
-  readonly json?: boolean;
 }
 
 /** The hours of a unit, with the time and the age of the estimate that they stand on. */
-interface HoursAnswer {
-  readonly unit: string;
-  readonly time: string;
-  readonly age_s: number | null;
-  readonly quality: Quality | null;
+interface HoursAnswer extends AheadHead {
   readonly state_of_charge: number | null;
   readonly answers: readonly LimitedAnswer[];
 }
 
 async function fromRecording(options: HoursOptions): Promise<HoursAnswer> {
-  const { config, recording } = options;
-  if (config === undefined || recording === undefined) {
-    throw new RockhourError('USAGE', 'hours needs --config and --recording, or --url of a daemon');
-  }
+  const recording = options.recording as string;
   const powers_W = parsePowers_W('--power', options.power);
   const at_ms = options.at === undefined ? null : parsePoint_ms('--at', options.at);
-  const { unit, otherChannels } = loadUnit(config, options.unit);
+  const { unit, otherChannels } = loadUnit(options.config as string, options.unit);
   const state = startUnit(unit);
   // The newest scan waits until it is known whether it is the last: hours belong to that one.
   let waiting: Scan | null = null;
@@ -57,10 +52,8 @@ async function fromRecording(options: HoursOptions): Promise<HoursAnswer> {
   if (last === null) throw nothingBefore(recording, options.at, begins_ms);
   const { estimate } = advance(unit, state, last, { hours_at_W: powers_W, profile: false });
   return {
-    unit: unit.id,
-    time: estimate.time,
+    ...aheadHead(unit, estimate.time, estimate.quality),
     age_s: at_ms === null ? 0 : (at_ms - last.time_ms) / 1000,
-    quality: estimate.quality,
     state_of_charge: estimate.state_of_charge,
     answers: limitedAnswers(unit, estimate.time, estimate.dispatch ?? []),
   };
@@ -69,22 +62,12 @@ async function fromRecording(options: HoursOptions): Promise<HoursAnswer> {
 async function fromDaemon(url: string, options: HoursOptions): Promise<HoursAnswer> {
   const powers_MW = parsePowers_W('--power', options.power).map((power) => power / 1e6);
   const unit = options.unit ?? (await onlyUnitOf(url));
-  const path = `/api/units/${encodeURIComponent(unit)}`;
-  const hours = (await askDaemon(url, `${path}/hours?power_MW=${powers_MW.join(',')}`)) as Pick<
-    HoursAnswer,
-    'time' | 'age_s' | 'answers'
-  >;
-  const now = (await askDaemon(url, path)) as {
-    estimate: { quality: Quality; state_of_charge: number } | null;
+  const query = { power_MW: powers_MW.join(',') };
+  const hours = (await askAhead({ ...options, unit }, 'hours', query)) as HoursAnswer;
+  const now = (await askDaemon(url, `/api/units/${encodeURIComponent(unit)}`)) as {
+    estimate: { state_of_charge: number } | null;
   };
-  return {
-    unit,
-    time: hours.time,
-    age_s: hours.age_s,
-    quality: now.estimate?.quality ?? null,
-    state_of_charge: now.estimate?.state_of_charge ?? null,
-    answers: hours.answers,
-  };
+  return { ...hours, state_of_charge: now.estimate?.state_of_charge ?? null };
 }
 
 const LIMIT_WORDS: Readonly<Record<CommandCause, string>> = {
@@ -102,7 +85,6 @@ export function limitLine(power_MW: number, done: 'given' | 'taken', cause: Comm
 }
 
 function text(answer: HoursAnswer): string {
-  const age = answer.age_s === null ? '' : `, ${Math.round(answer.age_s)} s old`;
   const charge =
     answer.state_of_charge === null
       ? ''
@@ -117,7 +99,7 @@ function text(answer: HoursAnswer): string {
   ]);
   const header = ['MW', 'h p90', 'h p50', 'h p10', 'MWh_el p90', 'MWh_el p50', 'MWh_el p10'];
   return [
-    `${answer.unit}: estimate of ${answer.time}${age}, quality ${answer.quality ?? 'unknown'}${charge}`,
+    `${headLine(answer)}${charge}`,
     table([...header, 'ends by'], rows),
     ...answer.answers.flatMap(({ power_MW, limited_by }) =>
       limited_by === null ? [] : [limitLine(power_MW, 'given', limited_by)],
@@ -127,15 +109,7 @@ function text(answer: HoursAnswer): string {
 }
 
 async function hours(options: HoursOptions): Promise<void> {
-  if (
-    options.url !== undefined &&
-    (options.recording ?? options.config ?? options.at) !== undefined
-  ) {
-    throw new RockhourError(
-      'USAGE',
-      '--url asks a daemon; --config, --recording and --at do not go with it',
-    );
-  }
+  checkAheadOptions('hours', options);
   const answer =
     options.url === undefined
       ? await fromRecording(options)
@@ -152,6 +126,7 @@ export function register(program: Command): void {
     .option('--at <time>', 'take rows up to this time (ISO 8601 with offset, or seconds)')
     .option('--url <address>', 'ask a running daemon instead, such as http://127.0.0.1:8080')
     .option('--unit <id>', 'unit asked for; needed where there are several')
+    .option('--stale <what>', 'where the estimate of a daemon is stale: refuse (default) or mark')
     .requiredOption('--power <MW>', 'powers, such as 1.2,1.8')
     .option('--json', 'answer as one line of JSON')
     .action(hours);

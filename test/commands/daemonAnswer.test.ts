@@ -7,6 +7,8 @@ import { freePort } from '../support/ports.js';
 const ANSWERS: Readonly<Record<string, { status: number; body: string }>> = {
   '/plant/api/units': { status: 200, body: '{"units":[]}' },
   '/plant/api/units/U9': { status: 404, body: '{"error":{"message":"there is no unit \\"U9\\""}}' },
+  '/plant/often': { status: 429, body: '{"error":{"message":"more than 3"}}' },
+  '/plant/nothing': { status: 404, body: 'Not Found' },
   '/plant/html': { status: 200, body: '<html>another server</html>' },
   '/plant/proxy': { status: 502, body: 'Bad gateway' },
 };
@@ -32,7 +34,8 @@ describe('asking a daemon', () => {
   });
 
   it.each([
-    ['/api/units/U9', 'answered with 404: there is no unit "U9"'],
+    ['/often', 'answered with 429: more than 3'],
+    ['/nothing', 'answered with 404: Not Found'],
     ['/html', 'not answered in JSON'],
     ['/proxy', 'answered with 502: Bad gateway'],
     ['/else', 'answered with 500: an empty body'],
@@ -41,6 +44,12 @@ describe('asking a daemon', () => {
       code: 'DAEMON_REFUSED',
       message: expect.stringContaining(words),
     });
+  });
+
+  it('takes a question that the daemon finds wrong for a wrong command line', async () => {
+    const wrong = askDaemon(base, '/api/units/U9');
+    await expect(wrong).rejects.toMatchObject({ code: 'USAGE', message: 'there is no unit "U9"' });
+    await expect(wrong).rejects.toMatchObject({ exitCode: 2 });
   });
 
   it('says where nothing answers', async () => {

@@ -7,7 +7,7 @@ import fastifyStatic from '@fastify/static';
 import swagger from '@fastify/swagger';
 import fastify, { type FastifyBaseLogger, LogController } from 'fastify';
 import { validatorCompiler, type ZodTypeProvider } from 'fastify-type-provider-zod';
-import { sendError } from './error-answer.js';
+import { errorHandler } from './error-answer.js';
 import { HttpFault } from './faults.js';
 import { JsonWriter } from './json.js';
 import { transformSchemas } from './openapi.js';
@@ -145,7 +145,7 @@ export async function createHttpApp(
   // The schemas of the answers document and type them; a test holds every answer against them.
   app.setSerializerCompiler(() => json.write);
   app.setReplySerializer((payload) => json.write(payload));
-  app.setErrorHandler(sendError);
+  app.setErrorHandler(errorHandler());
   app.setNotFoundHandler((request) => {
     throw new HttpFault(
       404,

@@ -56,6 +56,12 @@ function fromValidation(error: FastifyError, request: FastifyRequest): HttpFault
   });
 }
 
+/** The types of a body that a route takes. */
+function takenTypes(request: FastifyRequest): string[] {
+  const body = request.routeOptions.schema?.body as { content?: object } | undefined;
+  return body?.content === undefined ? ['application/json'] : Object.keys(body.content);
+}
+
 /** Any error of a request as the answer that the client gets. */
 export function answerOf(error: FastifyError | Error, request: FastifyRequest): HttpFault {
   if (error instanceof HttpFault) return error;
@@ -63,6 +69,14 @@ export function answerOf(error: FastifyError | Error, request: FastifyRequest): 
     return fromValidation(error as unknown as FastifyError, request);
   }
   const status = (error as FastifyError).statusCode ?? 500;
+  if (status === 415) {
+    const expected = `content-type ${takenTypes(request).join(' or ')}`;
+    return new HttpFault(415, 'unreadable_body', `${error.message}; expected ${expected}`, {
+      field: 'content-type',
+      value: request.headers['content-type'] ?? null,
+      expected,
+    });
+  }
   if (status >= 400 && status < 500) {
     return new HttpFault(status, 'unreadable_body', error.message, {
       expected: 'a JSON body with content-type application/json',
@@ -75,12 +89,26 @@ export function answerOf(error: FastifyError | Error, request: FastifyRequest): 
   );
 }
 
-/** fastify's error handler. Faults of the client are not logged; ours are. */
-export function sendError(error: Error, request: FastifyRequest, reply: FastifyReply): FaultBody {
-  const fault = answerOf(error, request);
-  if (fault.statusCode >= 500 && fault.code !== 'no_estimate_yet') {
-    request.log.error({ err: fault.cause ?? error, url: request.url }, fault.message);
-  }
-  reply.code(fault.statusCode).type('application/json; charset=utf-8');
-  return fault.body();
+/** A refusal of stale estimates is told at most this often [ms]: programs ask again and again. */
+const TELL_STALE_EVERY_MS = 60_000;
+
+/**
+ * fastify's error handler. Faults of the client are not logged; ours are. A stale estimate is the
+ * plant's doing: a warning without a stack.
+ */
+export function errorHandler() {
+  let told_ms = Number.NEGATIVE_INFINITY;
+  return function sendError(error: Error, request: FastifyRequest, reply: FastifyReply): FaultBody {
+    const fault = answerOf(error, request);
+    if (fault.code === 'estimate_stale') {
+      if (performance.now() - told_ms >= TELL_STALE_EVERY_MS) {
+        told_ms = performance.now();
+        request.log.warn({ url: request.url }, fault.message);
+      }
+    } else if (fault.statusCode >= 500 && fault.code !== 'no_estimate_yet') {
+      request.log.error({ err: fault.cause ?? error, url: request.url }, fault.message);
+    }
+    reply.code(fault.statusCode).type('application/json; charset=utf-8');
+    return fault.body();
+  };
 }

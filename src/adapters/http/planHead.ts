@@ -1,9 +1,7 @@
-import type { UnitDefinition } from '../../core/definitions.js';
-import type { Estimate, Quality } from '../../core/estimate.js';
+import type { Estimate } from '../../core/estimate.js';
 import type { PlanAnswers, PlanQuestion } from '../../core/plan/ask.js';
-import { GIVEN } from '../../core/plan/given.js';
+import { aheadHead } from '../../core/plan/head.js';
 import { HttpFault } from './faults.js';
-import { limitsView } from './limitsView.js';
 import type { PlantService, UnitNow } from './service.js';
 import { ageOf } from './views.js';
 
@@ -32,15 +30,21 @@ export function requireEstimate(now: UnitNow, stale: 'refuse' | 'mark' | undefin
   return now.estimate;
 }
 
-/** Head of an answer about what lies ahead, but for what changes while it is kept. */
-export function headOf(unit: UnitDefinition, time: string, quality: Quality) {
+export { aheadHead as headOf };
+
+/**
+ * The whole head of an answer.
+ *
+ * @param asked the unit when it was asked; the age is that of now
+ * @param time of the estimate that the answer stands on
+ */
+export function fullHead(service: PlantService, asked: UnitNow, estimate: Estimate, time: string) {
+  const { unit } = asked;
+  const after = service.now(unit.id) ?? asked;
   return {
-    unit: unit.id,
-    time,
-    valid_until: new Date(Date.parse(time) + unit.hours_every_s * 1000).toISOString(),
-    quality,
-    given: GIVEN,
-    limits: limitsView(unit, Date.parse(time)),
+    age_s: ageOf(after, time),
+    stale: after.stale,
+    ...aheadHead(unit, time, estimate.quality, after.stale),
   };
 }
 
@@ -68,13 +72,6 @@ export async function askPlan<K extends PlanQuestion['kind']>(
     throw fault;
   }
   const { time } = found;
-  const after = service.now(unit) ?? now;
-  return {
-    head: {
-      age_s: ageOf(after, time),
-      stale: after.stale,
-      ...headOf(now.unit, time, estimate.quality),
-    },
-    answer: found.answer as PlanAnswers[K],
-  };
+  const head = fullHead(service, now, estimate, time);
+  return { head, answer: found.answer as PlanAnswers[K] };
 }

@@ -1,9 +1,9 @@
 import type { StoreDefinition, UnitDefinition } from '../../core/definitions.js';
 import type { Estimate, ProfileView } from '../../core/estimate.js';
 import { limitedAnswers } from '../../core/plan/limitedBy.js';
+import { limitsView } from '../../core/plan/limitsView.js';
 import { ZERO_CELSIUS_K } from '../../core/units.js';
 import type { UnitWorth } from '../../core/worth/unitWorth.js';
-import { limitsView } from './limitsView.js';
 import type {
   StreamStateView,
   UnitDefinitionView,

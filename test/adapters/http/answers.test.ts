@@ -209,6 +209,28 @@ describe('the good answers, each held against the schema that documents it', () 
     expect(hours.age_s).toBe(4);
     const { answers } = await plant.hours('north', [1.2, 1.8]);
     expect(hours.answers).toEqual(answers.map((one) => ({ ...one, limited_by: null })));
+    const head = (await get('/api/units/north/headroom?power_MW=1')).json();
+    for (const key of ['valid_until', 'quality', 'given', 'limits', 'stale']) {
+      expect(head[key], key).toBeDefined();
+      expect(hours[key as keyof typeof hours], key).toEqual(head[key]);
+    }
+  });
+
+  it('refuses hours of a stale estimate, or marks them, valid no longer; warns once', async () => {
+    const { get, plant, logged } = await app();
+    plant.stale = true;
+    for (let n = 0; n < 3; n++) {
+      const refused = await get('/api/units/north/hours?power_MW=1');
+      expect(refused.statusCode).toBe(503);
+      expect(refused.json().error).toMatchObject({ code: 'estimate_stale', expected: 'mark' });
+    }
+    expect(logged).toHaveLength(1);
+    const told = JSON.parse(logged[0]!);
+    expect([told.level, told.err]).toEqual([40, undefined]);
+    for (const path of ['hours', 'headroom']) {
+      const marked = (await get(`/api/units/north/${path}?power_MW=1&stale=mark`)).json();
+      expect(marked).toMatchObject({ stale: true, time: plant.time(), valid_until: plant.time() });
+    }
   });
 
   it('answers what thermocouples are worth, for the hours ahead unless a day is asked for', async () => {
@@ -360,6 +382,7 @@ describe('the good answers, each held against the schema that documents it', () 
     const hours = document.paths['/api/units/{unit}/hours'].get;
     expect(hours.parameters.map((parameter: { name: string }) => parameter.name).sort()).toEqual([
       'power_MW',
+      'stale',
       'unit',
     ]);
     expect(

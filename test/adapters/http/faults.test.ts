@@ -170,7 +170,10 @@ describe('a wrong acknowledgement', () => {
     // A form of another site can send text/plain without asking first; JSON it cannot.
     const text = await post('{"id":"a","who":"b"}', { 'content-type': 'text/plain' });
     expect(text.answer.statusCode).toBe(415);
-    expect(text.error.code).toBe('unreadable_body');
+    expect(text.error).toMatchObject({
+      ...{ code: 'unreadable_body', field: 'content-type', value: 'text/plain' },
+      expected: 'content-type application/json',
+    });
   });
 });
 

@@ -218,6 +218,14 @@ describe('POST /api/units/{unit}/schedule', () => {
     expect(plant.planAsked).toEqual([]);
   });
 
+  it('names every type that it takes where it gets another', async () => {
+    const { app: own } = await app();
+    const headers = { 'content-type': 'application/xml' };
+    const answer = await own.inject({ method: 'POST', url: URL, headers, payload: '<a/>' });
+    expect(answer.statusCode).toBe(415);
+    expect(answer.json().error.expected).toBe('content-type application/json or text/csv');
+  });
+
   it('names the keys it knows where one is not', async () => {
     const answer = await post(await app(), { blocks: BLOCKS, certain: 0.9 });
     expect(answer.json().error).toMatchObject({

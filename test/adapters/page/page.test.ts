@@ -298,12 +298,27 @@ describe.skipIf(!chromium)('the page, in a real browser', { timeout: 30_000 }, (
     plant.step();
     const after = (await plant.hours('north', [1.4])).answers[0]!.energy_MWh_el.p50.toFixed(2);
     await expect.poll(() => field(page, 'energy-p50', p50).textContent()).toBe(after);
+    expect(await field(page, 'asked-stale', '#hours').textContent()).toBe('');
     // A power that the machine does not have is answered with that word.
     await page.fill('#power', '3.5');
     await page.keyboard.press('Enter');
     const told = page.locator('.asked [data-power="3.5"] .ends');
     await told.waitFor();
     expect(await told.textContent()).toMatch(/^limited: above its greatest power · ends: /);
+  });
+
+  it('marks the hours at a typed power that stand on a stale estimate', async () => {
+    const { page } = await open();
+    await page.waitForSelector('#hours li');
+    plant.stale = true;
+    try {
+      await page.fill('#power', '1.4');
+      await page.keyboard.press('Enter');
+      await page.waitForSelector('.asked li');
+      expect(await field(page, 'asked-stale', '#hours').textContent()).toMatch(/^Stale: /);
+    } finally {
+      plant.stale = false;
+    }
   });
 
   it('says what is wrong with a power that is none, and what the server makes of it', async () => {

@@ -10,7 +10,7 @@ import type {
   unitListSchema,
 } from '../../../src/adapters/http/schema/answers.js';
 import type {
-  Dispatch,
+  AskedHours,
   History,
   Profile,
   Standing,
@@ -29,7 +29,7 @@ export type Contract = [
   Sends<StreamStateView, StreamState>,
   Sends<UnitNowView['definition'], UnitDefinition>,
   Sends<UnitProfileView, Profile>,
-  Sends<z.output<typeof unitHoursSchema>, Dispatch>,
+  Sends<z.output<typeof unitHoursSchema>, AskedHours>,
   Sends<z.output<typeof unitListSchema>, UnitList>,
   Sends<z.output<typeof unitHistorySchema>, History>,
   Sends<z.output<typeof standingEventSchema>, Standing>,

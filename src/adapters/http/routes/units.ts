@@ -1,5 +1,7 @@
+import type { z } from 'zod';
 import { limitedAnswers } from '../../../core/plan/limitedBy.js';
 import { HttpFault } from '../faults.js';
+import { fullHead, requireEstimate } from '../planHead.js';
 import { faults, type Routes, unitOf } from '../routes.js';
 import {
   unitHoursSchema,
@@ -7,7 +9,8 @@ import {
   unitNowSchema,
   unitProfileSchema,
 } from '../schema/answers.js';
-import { hoursQuery, sensorsQuery, unitParams } from '../schema/questions.js';
+import { headroomQuery } from '../schema/plan.js';
+import { sensorsQuery, unitParams } from '../schema/questions.js';
 import { unitWorthSchema } from '../schema/worth.js';
 import type { PlantService, UnitNow } from '../service.js';
 import { ageOf, definitionView, profileView, stateView, worthView } from '../views.js';
@@ -21,12 +24,17 @@ function noEstimate(unit: string): HttpFault {
   );
 }
 
-async function askHours(service: PlantService, now: UnitNow, powers: readonly number[]) {
+async function askHours(
+  service: PlantService,
+  now: UnitNow,
+  { power_MW: powers, stale }: z.output<typeof headroomQuery>,
+) {
   const unit = now.unit.id;
+  const estimate = requireEstimate(now, stale);
   try {
     const { time, answers } = await service.hours(unit, powers);
-    const age_s = ageOf(service.now(unit) ?? now, time);
-    return { unit, time, age_s, answers: limitedAnswers(now.unit, time, answers) };
+    const head = fullHead(service, now, estimate, time);
+    return { ...head, answers: limitedAnswers(now.unit, time, answers) };
   } catch (cause) {
     const why = cause instanceof Error ? cause.message : String(cause);
     const fault = new HttpFault(
@@ -147,14 +155,13 @@ export const unitRoutes: Routes = (app, { service, tuning }) => {
         summary: 'Hours and energy left at given powers, from the present estimate',
         tags,
         params: unitParams,
-        querystring: hoursQuery,
+        querystring: headroomQuery,
         response: { 200: unitHoursSchema.describe('An answer per power asked for'), ...faults },
       },
     },
     async (request) => {
       const now = unitOf(service, request.params.unit);
-      if (now.estimate === null) throw noEstimate(now.unit.id);
-      return askHours(service, now, request.query.power_MW);
+      return askHours(service, now, request.query);
     },
   );
 

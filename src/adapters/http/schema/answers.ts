@@ -4,6 +4,7 @@ import { EVENT_KINDS } from '../../../core/watch/event.js';
 import { FAULT_CODES } from '../faults.js';
 import { dispatchSchema, estimateSchema, profileSchema, timeSchema } from './estimate.js';
 import { limitsSchema } from './limits.js';
+import { answerHead } from './plan.js';
 
 /** Schemas of the answers; the types of the views are made from them. */
 
@@ -99,7 +100,10 @@ export const unitListSchema = z.object({
   ),
 });
 
-export const unitHoursSchema = dispatchSchema.extend({ unit: z.string() });
+export const unitHoursSchema = z.object({
+  ...answerHead,
+  answers: dispatchSchema.shape.answers,
+});
 
 export const unitProfileSchema = profileSchema.extend({ age_s: z.number().nullable() });
 

@@ -1,5 +1,5 @@
 import type {
-  Dispatch,
+  AskedHours,
   History,
   Standing,
   StreamState,
@@ -38,7 +38,9 @@ export class Api {
   profile = (unit: string) =>
     this.ask<NonNullable<StreamState['profile']>>(`api/units/${encodeURIComponent(unit)}/profile`);
   hours = (unit: string, power_MW: number) =>
-    this.ask<Dispatch>(`api/units/${encodeURIComponent(unit)}/hours?power_MW=${power_MW}`);
+    this.ask<AskedHours>(
+      `api/units/${encodeURIComponent(unit)}/hours?power_MW=${power_MW}&stale=mark`,
+    );
   standing = async () => (await this.ask<{ standing: Standing[] }>('api/alarms')).standing;
 
   history(

@@ -49,6 +49,11 @@ export interface Dispatch {
   answers: LimitedAnswer[];
 }
 
+/** Hours that were asked for: from a stale estimate too, and then marked. */
+export interface AskedHours extends Dispatch {
+  stale: boolean;
+}
+
 export type Reading = Omit<SensorReading, 'value_K'> & { value_degC: number | null };
 export type Tube = Pick<TubeProfile, 'id' | 'sigma_K'> & { temperature_degC: number[] };
 

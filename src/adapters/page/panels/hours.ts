@@ -12,13 +12,15 @@ import {
 } from '../lib/format.js';
 import { ageNow, type PageModel } from '../lib/model.js';
 import { roundHours, typedPower } from '../lib/powers.js';
-import type { Dispatch, LimitedAnswer } from '../lib/wire.js';
+import type { AskedHours, LimitedAnswer } from '../lib/wire.js';
 
 const LEVELS = [
   { key: 'p90', label: 'firm, p90' },
   { key: 'p50', label: 'p50' },
   { key: 'p10', label: 'p10' },
 ] as const;
+
+const STALE = 'Stale: the unit has moved on since the estimate that this stands on.';
 
 /** Bar of one answer: sure up to p90, open up to p10, a mark at p50. */
 function hoursBar() {
@@ -105,6 +107,7 @@ function rowList(list: HTMLElement) {
 /** Hours at the configured powers and at one that the user types. */
 export function hoursPanel(model: PageModel, api: Api): () => void {
   const list = h('ol', { class: 'hours' });
+  const mark = h('p', { class: 'fault', 'data-field': 'asked-stale' });
   const asked = h('ol', { class: 'hours asked', 'aria-live': 'polite' });
   const when = h('p', { class: 'when' });
   const input = h('input', {
@@ -121,12 +124,12 @@ export function hoursPanel(model: PageModel, api: Api): () => void {
     h('label', { for: 'power' }, 'At another power'),
     h('span', { class: 'entry' }, input, unitText('MW_el'), h('button', {}, 'Work out')),
   );
-  byId('hours').append(when, list, form, fault, asked);
+  byId('hours').append(when, list, form, fault, mark, asked);
   const drawList = rowList(list);
   const drawAsked = rowList(asked);
 
   let question: { unit: string; power_MW: number; basis: string } | null = null;
-  let answer: Dispatch | null = null;
+  let answer: AskedHours | null = null;
 
   async function ask(unit: string, power_MW: number): Promise<void> {
     const mine = { unit, power_MW, basis: basisOf() };
@@ -181,6 +184,7 @@ export function hoursPanel(model: PageModel, api: Api): () => void {
     const full_h = roundHours(Math.max(0.5, ...all.map((one) => one.hours.p10)));
     drawList(answers, full_h);
     drawAsked(answer?.answers ?? [], full_h);
+    setText(mark, answer?.stale ? STALE : '');
     const told = entry?.state?.age_s ?? null;
     const now = entry === null ? null : ageNow(entry);
     const since = told === null || now === null ? 0 : Math.max(0, now - told);

@@ -1,6 +1,5 @@
-import type { Direction, StartUpDefinition, UnitDefinition } from '../../core/definitions.js';
-import { type ConnectionNow, limitsAhead } from '../../core/plan/limitsAhead.js';
-import type { LimitsView } from './schema/limits.js';
+import type { Direction, StartUpDefinition, UnitDefinition } from '../definitions.js';
+import { type ConnectionNow, limitsAhead } from './limitsAhead.js';
 
 const MW = (power_W: number) => power_W / 1e6;
 const iso = (time_ms: number) => new Date(time_ms).toISOString();
@@ -10,11 +9,11 @@ const iso = (time_ms: number) => new Date(time_ms).toISOString();
  *
  * @param now_ms time that the connection and the outages are told for: that of the estimate
  */
-export function limitsView(unit: UnitDefinition, now_ms: number): LimitsView {
+export function limitsView(unit: UnitDefinition, now_ms: number) {
   const { limits, machine } = unit;
   const { operation } = limits;
   const ahead = limitsAhead(limits, now_ms);
-  const direction = (own: Direction): LimitsView['charge'] => {
+  const direction = (own: Direction) => {
     const { power_min_W, power_max_W, flow_min_kg_s, flow_max_kg_s } = limits[own];
     const rate = operation?.ramp_W_s[own] ?? null;
     return {
@@ -65,7 +64,7 @@ function startView(start: {
   readonly warm: StartUpDefinition;
   readonly cold: StartUpDefinition;
   readonly cold_after_s: number;
-}): LimitsView['start'] {
+}) {
   const one = ({ time_s, energy_J }: StartUpDefinition) => ({
     time_min: time_s / 60,
     energy_kWh_el: energy_J / 3.6e6,
