@@ -83,7 +83,13 @@ describe('the options of rockhour offers', () => {
   it.each([
     [{ power: '-1' }, '--power is "-1"; expected powers in MW above 0'],
     [{ certainty: '0.9,x' }, '--certainty is "x"; expected a number'],
-    [{ shortfall: '90' }, '--surplus is ""; expected a number'],
+    [
+      { shortfall: '90' },
+      '--surplus is missing; expected a number above 0 per MWh_el: both prices',
+    ],
+    [{ surplus: '90' }, '--shortfall is missing; '],
+    [{ surplus: '90', shortfall: 'x' }, '--shortfall is "x"; expected a number'],
+    [{ start: LATER, count: '5' }, '"; expected none beside --closes-before, --count or --every'],
     [{ horizon: 'long' }, '--horizon is "long"; expected a time span'],
     [{ plan: join(folder, 'none.csv') }, 'none.csv: '],
   ])('%j are refused in words', (over, said) => {

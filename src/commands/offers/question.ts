@@ -35,10 +35,18 @@ export function writtenAsk(options: OffersOptions): WrittenOffersAsk {
   const gated = (options.closesBefore ?? options.count ?? options.every) !== undefined;
   const priced = (shortfall ?? surplus) !== undefined;
   const closes = options.closesBefore ?? '0';
+  if (gated && start !== undefined) {
+    const beside = 'none beside --closes-before, --count or --every';
+    throw usage(`--start is ${JSON.stringify(start)}; expected ${beside}`);
+  }
+  if (priced && (shortfall === undefined || surplus === undefined)) {
+    const missing = shortfall === undefined ? '--shortfall' : '--surplus';
+    throw usage(`${missing} is missing; expected a number above 0 per MWh_el: both prices or none`);
+  }
   return {
     powers_MW_el: parsePowers_W('--power', power).map((power_W) => power_W / 1e6),
     ...(start === undefined ? {} : { starts: start.split(',').map((text) => text.trim()) }),
-    ...(gated || start === undefined
+    ...(start === undefined
       ? {
           gate: {
             closes_before_min: closes === '0' ? 0 : minutes('--closes-before', closes),
