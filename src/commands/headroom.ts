@@ -44,8 +44,17 @@ function text(answer: HeadroomAnswer): string {
     ...answer.answers.flatMap(({ power_MW_el, refused, limited_by }) =>
       limited_by === null || refused !== null ? [] : [limitLine(power_MW_el, 'taken', limited_by)],
     ),
+    ...answer.answers.flatMap(deratedLine),
     'p90 is the firm figure: exceeded with 90 % probability.',
   ].join('\n');
+}
+
+function deratedLine({ power_MW_el, derated_after_hours, derated_to_MW_el }: Headroom): string[] {
+  if (derated_after_hours === null || derated_to_MW_el === null) return [];
+  const [hours, to] = [derated_after_hours.toFixed(2), derated_to_MW_el.toFixed(2)];
+  return [
+    `${power_MW_el} MW_el need more than the greatest flow after ${hours} h (p50): it takes less, down to ${to} MW_el.`,
+  ];
 }
 
 async function headroom(options: AheadOptions & { power: string }): Promise<void> {

@@ -73,7 +73,7 @@ export interface MarchOptions {
 
 /** Until the lids are swept a step is taken in so many parts. */
 const SWEEP_PARTS = 5;
-/** After the first rule is broken the others are followed for this share of the run longer. */
+/** After a run has ended the other rules are followed for this share of it longer. */
 const FOLLOW = 0.15;
 /** A derated unit stops below this share of the commanded power where no least power is set. */
 const LEAST_SHARE = 0.02;
@@ -174,7 +174,16 @@ export function marchEpisode(
   const { beyond_s } = options;
   const more_s = typeof beyond_s === 'number' ? beyond_s : beyond_s(first.from_s, held_s);
   const until = whole ? on.run.t + more_s : Number.POSITIVE_INFINITY;
-  if (more_s > 0 || !whole) followOn(model, on.ahead, on.run, on.power_W, until, options);
+  if (more_s > 0 || !whole) {
+    followOn(
+      model,
+      on.ahead,
+      on.run,
+      on.power_W,
+      { until_s: until, ended_s: whole ? null : stopped },
+      options,
+    );
+  }
   let best = Number.POSITIVE_INFINITY;
   let cause: EndCause = 'empty';
   on.run.times.forEach((time, r) => {
@@ -301,8 +310,7 @@ function stepRun(
   const trend = Number.isFinite(run.workBefore) ? work - run.workBefore : 0;
   const middle = work + trend * (0.5 + mean / dt);
   const wanted = flowFor(model, direction, power_W, middle > 0 ? middle : work, run.flow);
-  // Past the first broken rule the flow may run away; the rest only serves the other rules' times.
-  const flow = Math.min(wanted, goOn ? 2 * most : most);
+  const flow = Math.min(wanted, most);
   run.workBefore = run.swept ? work : Number.NaN;
   run.flow = flow;
   model.stores.forEach((store, i) => {
@@ -368,19 +376,24 @@ function noteBreaks(model: AheadModel, run: Run, margins: readonly number[]): vo
   });
 }
 
-/** Goes on at a constant power so that the rules not yet broken have a time. */
+/**
+ * Goes on at a constant power so that the rules not yet broken have a time: until some time past the
+ * end of the run, or past its first broken rule where it did not end by one.
+ */
 function followOn(
   model: AheadModel,
   ahead: BedsAhead,
   run: Run,
   power_W: number,
-  until_s: number,
+  { until_s, ended_s }: { readonly until_s: number; readonly ended_s: number | null },
   options: MarchOptions,
 ): void {
   if (!(power_W > 0)) return;
   for (;;) {
-    const follow = run.first + FOLLOW * Math.max(run.first - run.from_s, options.step_s);
-    if (run.t >= Math.min(until_s, follow) || run.first <= run.from_s) return;
+    // A derated run ends long after its first broken rule, that of the greatest flow.
+    const end_s = ended_s ?? run.first;
+    const follow = end_s + FOLLOW * Math.max(end_s - run.from_s, options.step_s);
+    if (run.t >= Math.min(until_s, follow) || end_s <= run.from_s) return;
     stepRun(model, ahead, run, power_W, stepOf(run, options.step_s), options.works, true);
     if (!Number.isFinite(run.flow)) return;
   }

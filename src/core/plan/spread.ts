@@ -10,6 +10,7 @@ import type { UnitModel } from '../unitModel.js';
 import type { UnitState } from '../unitState.js';
 import type { Command } from './command.js';
 import type { Course } from './course.js';
+import type { Delivered } from './episode.js';
 import { latinNormals, NORMAL_COUNT } from './latinNormals.js';
 import type { Change, Outlook } from './outlook.js';
 
@@ -169,7 +170,13 @@ function addUnseen(
   const sigma = times.map((q) => {
     if (q.cause !== own && q.cause !== 'flow') return 0;
     const episode = course.episodes[q.episode] as Course['episodes'][number];
-    const power = powerAbout(command, episode.from_s, Math.min(q.time_s, episode.to_s));
+    const { from_s, to_s, derated_s, stopped_s } = episode;
+    const until_s = Math.min(q.time_s, to_s);
+    // A derated unit takes longer than the power commanded says.
+    const power =
+      derated_s === null
+        ? powerAbout(command, from_s, until_s)
+        : meanAbout(course.delivered, from_s, Math.min(until_s, stopped_s ?? to_s));
     const lasts_s = power > 0 ? (unit.rated_hours * 3600 * unit.rated_power_W) / power : 0;
     // More charge of a store lengthens a discharge and shortens a charge.
     return (episode.direction === 'discharge' ? 1 : -1) * soc * lasts_s;
@@ -183,12 +190,20 @@ function addUnseen(
 
 /** Mean commanded power of the running pieces between two times [W]. */
 function powerAbout(command: Command, from_s: number, to_s: number): number {
+  return meanAbout(
+    command.pieces.filter(({ mode }) => mode !== 'stand'),
+    from_s,
+    to_s,
+  );
+}
+
+function meanAbout(pieces: readonly Delivered[], from_s: number, to_s: number): number {
   let energy = 0;
   let time = 0;
-  for (const piece of command.pieces) {
+  for (const piece of pieces) {
     const from = Math.max(from_s, piece.from_s);
     const to = Math.min(to_s, piece.to_s);
-    if (piece.mode === 'stand' || !(to > from)) continue;
+    if (!(to > from)) continue;
     energy += (Math.abs(piece.power0_W + piece.power1_W) / 2) * (to - from);
     time += to - from;
   }

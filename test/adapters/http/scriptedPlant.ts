@@ -227,6 +227,8 @@ export class ScriptedPlant implements PlantService {
         hours,
         energy_MWh_el,
         ends_by: 'hot_outlet',
+        derated_after_hours: null,
+        derated_to_MW_el: null,
         refused: null,
         limited_by: null,
       };

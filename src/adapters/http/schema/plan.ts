@@ -47,7 +47,22 @@ export const headroomSchema = z.object({
       power_MW_el: z.number().describe('Charging, at the connection point'),
       hours: quantilesSchema.describe('From the first power on'),
       energy_MWh_el: quantilesSchema.describe('Taken from the grid meanwhile, start-up included'),
-      ends_by: z.enum(END_CAUSES).nullable().describe('null: nothing within the time looked ahead'),
+      ends_by: z
+        .enum(END_CAUSES)
+        .nullable()
+        .describe(
+          'A rule of the outlets or the pressure drop; flow: its greatest flow takes less than the least power. null: nothing within the time looked ahead',
+        ),
+      derated_after_hours: z
+        .number()
+        .nullable()
+        .describe(
+          'From when on, p50, the power needs more than the greatest flow: it takes less then. null: never',
+        ),
+      derated_to_MW_el: z
+        .number()
+        .nullable()
+        .describe('Least power that it then takes before it ends; null: all that is asked'),
       refused: z.string().nullable().describe('Why it would not run at this power; null: it would'),
       limited_by: z
         .enum(COMMAND_CAUSES)
