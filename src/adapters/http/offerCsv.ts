@@ -1,11 +1,9 @@
 import type { OfferTable, WrittenOffer } from '../../core/plan/offerTable.js';
-import { toCsv } from './csv.js';
+import { STAND_COLUMNS, type Stand, standOf, toCsv } from './csv.js';
 import type { HistoryPoint } from './service.js';
 
 const COLUMNS = [
-  'time',
-  'age_s',
-  'valid_until',
+  ...STAND_COLUMNS,
   'power_MW_el',
   'start',
   'part',
@@ -23,26 +21,19 @@ const COLUMNS = [
   'refused',
 ] as const;
 
-/** What the table stands on, and until when. */
-export interface CsvHead {
-  readonly time: string;
-  readonly age_s: number | null;
-  readonly valid_until: string;
-}
-
 /**
  * An offer table as rows: per power, start and certainty one of the `whole` discharge, then one per
  * `block`. What a part does not have is empty.
  */
-export function offersCsv(head: CsvHead, table: OfferTable): string {
-  const { time, age_s, valid_until } = head;
+export function offersCsv(head: Stand, table: OfferTable): string {
+  const stand = standOf(head);
   return toCsv(
     COLUMNS,
-    table.offers.flatMap((offer) => rowsOf({ time, age_s, valid_until }, offer)),
+    table.offers.flatMap((offer) => rowsOf(stand, offer)),
   );
 }
 
-function rowsOf(stand: CsvHead, offer: WrittenOffer): HistoryPoint[] {
+function rowsOf(stand: HistoryPoint, offer: WrittenOffer): HistoryPoint[] {
   const { power_MW_el, start, begins, refused } = offer;
   const head = { ...stand, power_MW_el, start, refused };
   const whole = offer.at.map(

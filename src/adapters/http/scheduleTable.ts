@@ -1,6 +1,6 @@
 import type { Schedule } from '../../core/plan/schedule.js';
 import { csvValue } from '../../core/plan/scheduleCsv.js';
-import { toCsv } from './csv.js';
+import { STAND_COLUMNS, type Stand, standOf, toCsv } from './csv.js';
 
 const COLUMNS = [
   'from',
@@ -17,26 +17,20 @@ const COLUMNS = [
   'met_probability',
 ] as const;
 
-/** What every row repeats of the answer's head. */
-export interface ScheduleCsvHead {
-  readonly time: string;
-  readonly age_s: number | null;
-  readonly valid_until: string;
-}
-
 /**
  * A schedule check as rows, one per block, with the states of charge at its end (empty where there
  * are more edges than the answer holds) and what the whole answer stands on; numbers to 9 digits.
  */
-export function scheduleTable(head: ScheduleCsvHead, schedule: Schedule): string {
+export function scheduleTable(head: Stand, schedule: Schedule): string {
   const stores = Object.keys(schedule.charge[0]?.stores ?? {});
   const points = new Map(schedule.charge.map((point) => [point.time, point]));
   const columns = [
+    ...STAND_COLUMNS,
     ...COLUMNS,
     'state_of_charge_at_end',
     'state_of_charge_at_end_sigma',
     ...stores.flatMap((id) => [`${id}_soc_at_end`, `${id}_soc_at_end_sigma`]),
-    ...['schedule_probability', 'certainty', 'estimate_time', 'estimate_age_s', 'valid_until'],
+    ...['schedule_probability', 'certainty'],
   ];
   const rows = schedule.blocks.map((block) => {
     const at = points.get(block.to);
@@ -51,13 +45,9 @@ export function scheduleTable(head: ScheduleCsvHead, schedule: Schedule): string
       ...Object.fromEntries(charges.flat()),
       schedule_probability: schedule.probability,
       certainty: schedule.certainty,
-      time: head.time,
-      estimate_time: head.time,
-      estimate_age_s: head.age_s,
-      valid_until: head.valid_until,
     };
     const rounded = Object.entries(row).map(([name, value]) => [name, csvValue(value)]);
-    return { ...(Object.fromEntries(rounded) as typeof row), time: head.time };
+    return { ...(Object.fromEntries(rounded) as typeof row), ...standOf(head), time: head.time };
   });
   return toCsv(columns, rows);
 }

@@ -56,12 +56,14 @@ describe('GET /api/units/{unit}/capability', () => {
     expect(byAccept.body).toBe(byFormat.body);
     const lines = byFormat.body.trimEnd().split('\r\n');
     expect(lines[0]).toBe(
-      'time,direction,state_of_charge,power_MW_el,limited_by,energy_MWh_el,hot_stored_MWh_th,largest_error_MW_el',
+      'unit,time,age_s,valid_until,stale,quality,direction,state_of_charge,power_MW_el,limited_by,energy_MWh_el,hot_stored_MWh_th,largest_error_MW_el',
     );
     const { discharge, charge } = capabilitySchema.parse((await get(url)).json());
     expect(lines).toHaveLength(1 + discharge.points.length + charge.points.length);
     const [first] = discharge.points;
-    expect(lines[1]?.split(',').slice(1, 4)).toEqual([
+    const head = (await get(url)).json();
+    expect(lines[1]?.split(',').slice(0, 9)).toEqual([
+      ...['one', head.time, '4', head.valid_until, 'false', head.quality],
       'discharge',
       String(first?.state_of_charge),
       String(first?.power_MW_el),

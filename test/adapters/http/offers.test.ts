@@ -163,15 +163,18 @@ describe('GET /api/units/{unit}/offers', () => {
     expect(byAccept.body).toBe(byFormat.body);
     const [header, ...rows] = byFormat.body.trimEnd().split('\r\n');
     expect(header).toMatch(
-      /^time,age_s,valid_until,power_MW_el,start,part,from,to,certainty,energy_MWh_el,/,
+      /^unit,time,age_s,valid_until,stale,quality,power_MW_el,start,part,from,to,certainty,energy_MWh_el,/,
     );
     // 0.62 x 16 MWh at 2 MW: 4.96 h, at most 1.1 of it, so six blocks; two certainties each.
     expect(rows).toHaveLength(2 * (1 + 6));
-    const blocks = rows.map((row) => row.split(',')).filter((row) => row[5] === 'block');
-    const sum = blocks.filter((row) => row[8] === '0.9').reduce((a, row) => a + Number(row[9]), 0);
-    const whole = rows.map((row) => row.split(',')).find((row) => row[8] === '0.9')!;
+    for (const row of rows) expect(row).toMatch(/^north,2026[^,]*Z,4,2026[^,]*Z,false,good,2,/);
+    const blocks = rows.map((row) => row.split(',')).filter((row) => row[8] === 'block');
+    const sum = blocks
+      .filter((row) => row[11] === '0.9')
+      .reduce((a, row) => a + Number(row[12]), 0);
+    const whole = rows.map((row) => row.split(',')).find((row) => row[11] === '0.9')!;
     // Nine digits of each.
-    expect(sum).toBeCloseTo(Number(whole[9]), 7);
+    expect(sum).toBeCloseTo(Number(whole[12]), 7);
   });
 
   it('refuses one price alone', async () => {

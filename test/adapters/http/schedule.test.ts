@@ -110,7 +110,8 @@ describe('POST /api/units/{unit}/schedule', () => {
     expect(cell(first!, 'state_of_charge_at_end')).toBe('0.5');
     expect(cell(second!, 'hot_soc_at_end')).toBe('0.7');
     expect(cell(second!, 'mode')).toBe('stand');
-    expect(cell(second!, 'estimate_age_s')).toBe('4');
+    expect(header).toMatch(/^unit,time,age_s,valid_until,stale,quality,from,/);
+    expect(second).toMatch(/^north,2026[^,]*Z,4,2026[^,]*Z,false,good,/);
     expect(Date.parse(cell(second!, 'valid_until')!)).toBeGreaterThan(NOON - 1e9);
   });
 

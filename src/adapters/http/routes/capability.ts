@@ -1,13 +1,13 @@
 import { z } from 'zod';
 import type { Capability } from '../../../core/plan/capability.js';
-import { toCsv, wantsCsv } from '../csv.js';
+import { STAND_COLUMNS, type Stand, standOf, toCsv, wantsCsv } from '../csv.js';
 import { askPlan } from '../planHead.js';
 import { faults, type Routes, unitOf } from '../routes.js';
 import { capabilityQuery, capabilitySchema } from '../schema/capability.js';
 import { unitParams } from '../schema/questions.js';
 
 /** Both curves as rows, each with the direction that it is of. */
-function csvOf(time: string, answer: Capability): string {
+function csvOf(head: Stand, answer: Capability): string {
   const curves = [answer.discharge, answer.charge];
   const stores = [
     ...new Set(
@@ -18,7 +18,7 @@ function csvOf(time: string, answer: Capability): string {
   ];
   const stored = (id: string) => `${id}_stored_MWh_th`;
   const columns = [
-    'time',
+    ...STAND_COLUMNS,
     'direction',
     'state_of_charge',
     'power_MW_el',
@@ -29,7 +29,8 @@ function csvOf(time: string, answer: Capability): string {
   ];
   const rows = curves.flatMap(({ direction, largest_error_MW_el, points }) =>
     points.map(({ stored_MWh_th, ...point }) => ({
-      time,
+      ...standOf(head),
+      time: head.time,
       direction,
       ...point,
       ...Object.fromEntries(stores.map((id) => [stored(id), stored_MWh_th[id] ?? null])),
@@ -76,7 +77,7 @@ export const capabilityRoutes: Routes = (app, { service, tuning }) => {
         const name = now.unit.id.replace(/[^\w.-]+/g, '_');
         reply.header('content-disposition', `attachment; filename="${name}-capability.csv"`);
         reply.type('text/csv; charset=utf-8; header=present');
-        return csvOf(head.time, answer);
+        return csvOf(head, answer);
       }
       reply.type('application/json; charset=utf-8');
       return { ...head, ...answer };
