@@ -73,6 +73,16 @@ function nearestText({ nearest, nearest_reason, certainty }: Schedule): string {
   return `Nearest that holds with ${sure}: ${how}; it holds with ${percent(probability)}.`;
 }
 
+function netText(schedule: Schedule): string {
+  const { planned_net_MWh_el, expected_net_MWh_el, net_MWh_el, between_MWh_el } = schedule;
+  const ramps = three(schedule.ramps_between_MWh_el);
+  return [
+    `Net of the whole, + = given: planned ${three(planned_net_MWh_el)} MWh_el`,
+    `expected ${three(expected_net_MWh_el)}, most likely ${three(net_MWh_el)}`,
+    `${three(between_MWh_el)} drawn and ${ramps} ramped between the blocks in it.`,
+  ].join(', ');
+}
+
 /** A schedule check for people. */
 export function scheduleText(schedule: Schedule): string[] {
   const { probability, stores_probability, certainty, first_shortfall, ramp_MWh_el } = schedule;
@@ -86,6 +96,7 @@ export function scheduleText(schedule: Schedule): string[] {
     ...runsText(schedule),
     ...blocksText(schedule),
     `Ramps take ${three(ramp_MWh_el)} MWh_el, which is no shortfall.`,
+    netText(schedule),
     nearestText(schedule),
     'MWh_el at the connection point, in the direction of the block; given that the machine runs.',
   ];

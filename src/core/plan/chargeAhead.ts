@@ -18,11 +18,19 @@ export interface ChargeAhead {
   readonly stores: readonly { readonly soc: number; readonly sigma: number }[];
 }
 
+/** Where the states of charge of stores were taken down. */
+export interface ChargePoints {
+  /** Ascending, above 0 [s]. */
+  readonly times_s: readonly number[];
+  /** By time and store. */
+  readonly charges: readonly (readonly number[])[];
+}
+
 /** Steps end within this of the times they are meant to [s]. */
 const SAME_S = 1e-3;
 
 /**
- * State of charge now and at every edge of a plan.
+ * State of charge now and at every point of a plan.
  *
  * A store's is that of the best march; its sigma follows from the gradient (see sigmasAtMarks), taken
  * at the marks and drawn straight between.
@@ -35,14 +43,15 @@ const SAME_S = 1e-3;
  * and coarse cells leave, a few thousandths; between them less than a hundredth more.
  *
  * @param course of the best march of `command`
- * @param edges_s, marks_s as given to `watchedMarches`; every mark is an edge
+ * @param points of the best march: the edges of the plan, and what other times are told
+ * @param marks_s as given to `watchedMarches`; every mark is one of the points
  */
 export function chargesAhead(
   outlook: Outlook,
   command: Command,
   course: Course,
   watched: WatchedMarches,
-  edges_s: readonly number[],
+  points: ChargePoints,
   marks_s: readonly number[],
 ): ChargeAhead[] {
   const { model, state } = outlook;
@@ -53,16 +62,17 @@ export function chargesAhead(
     sigmaNow(outlook, perCharge, units[0] as number),
     ...sigmasAtMarks(outlook, watched, perCharge, units.slice(1)),
   ];
-  const times_s = [0, ...edges_s];
+  const times_s = [0, ...points.times_s];
   const charges = [
     model.stores.map((store, s) => storeEnergy(store, state.stores[s] as StoreState).soc),
-    ...watched.edges.charges,
+    ...points.charges,
   ];
   let carried = units[0] as number;
   const raw = times_s.map((t_s, i) => {
     if (i === 0) return carried;
     const span = { from_s: times_s[i - 1] as number, to_s: t_s };
-    const change = least(charges[i] as number[]) - least(charges[i - 1] as number[]);
+    const change =
+      least(charges[i] as readonly number[]) - least(charges[i - 1] as readonly number[]);
     carried += given(outlook, command, course, span) ?? perCharge * change;
     return carried;
   });

@@ -2,12 +2,14 @@ import type { Mode } from '../definitions.js';
 import type { EndCause } from '../estimate.js';
 import { type BlockFigures, blockFigures, runEnergies } from './blockFigures.js';
 import { chargesAhead } from './chargeAhead.js';
+import { edgesOf, MOST_POINTS, marksOf, thinned, withStops } from './chargePoints.js';
 import type { PlanContext } from './context.js';
 import type { Course } from './course.js';
 import { type Evaluation, exceeded, holding, isAsked } from './evaluation.js';
 import type { CommandCause, Leg } from './leg.js';
 import { writtenIn } from './localTime.js';
 import { type NearestLegs, type NearestReason, nearestLegs } from './nearest.js';
+import { type NetEnergy, netEnergy } from './netEnergy.js';
 import { createPlanner } from './planner.js';
 import { requireSchedule, type ScheduleAsk } from './scheduleAsk.js';
 import { firstShortfall, storesShortfall } from './shortfall.js';
@@ -81,7 +83,7 @@ export interface NearestView {
 }
 
 /** What becomes of a schedule. */
-export interface Schedule {
+export interface Schedule extends NetEnergy {
   readonly certainty: number;
   /** That everything asked for is done: 0 where machine, connection or outages leave some unmet. */
   readonly probability: number;
@@ -95,7 +97,7 @@ export interface Schedule {
   readonly blocks: (BlockView & BlockFigures)[];
   readonly runs: RunView[];
   readonly reserve_looked_hours: number;
-  /** At block edges, the present first; see chargesAhead. */
+  /** At block edges and where runs stop on the most likely course, the present first; see chargesAhead. */
   readonly charge: ChargeView[];
   /** Edges that `charge` leaves out, where there are more than it holds. */
   readonly charge_left_out: number;
@@ -106,10 +108,6 @@ export interface Schedule {
 }
 
 const J_PER_MWH = 3.6e9;
-/** Most points of the state of charge, the present included. */
-const MOST_POINTS = 200;
-/** Most times at which the unit's state of charge is rolled out. */
-const MOST_MARKS = 14;
 
 /**
  * Whether a schedule holds, with all its figures: each run has to hold its power to its end, jointly
@@ -152,13 +150,15 @@ export function scheduleOf(context: PlanContext, ask: ScheduleAsk): Schedule {
     return { p50: at(0.5), certain: at(certainty) };
   };
   const stores_probability = holding(course.episodes, evaluation.first_s);
-  const charges = chargesAhead(outlook, command, course, watched, edges_s, marks_s);
+  const points = withStops(outlook, command, course, watched.edges, edges_s);
+  const charges = chargesAhead(outlook, command, course, watched, points, marks_s);
   const nearest = nearestLegs(planner, legs, evaluation, certainty);
   return {
     certainty,
     probability: command.unmet.length > 0 ? 0 : stores_probability,
     stores_probability,
     ramp_MWh_el: figures.reduce((sum, one) => sum + one.ramp_MWh_el, 0),
+    ...netEnergy(legs, evaluation, energies),
     unmet: command.unmet.map(({ leg, cause, from_s, to_s, missing_W }) => ({
       block: leg,
       cause,
@@ -226,40 +226,4 @@ function nearestView(
     taken_out: nearest.taken_out,
     probability: nearest.probability,
   };
-}
-
-/** Begins and ends of blocks after the present [s]. */
-function edgesOf(legs: readonly Leg[]): number[] {
-  const all = new Set(legs.flatMap(({ from_s, to_s }) => [from_s, to_s]));
-  return [...all].filter((t_s) => t_s > 0).sort((a, b) => a - b);
-}
-
-/** Edges at which the mode changes, and the last; evenly thinned and filled up to `MOST_MARKS`. */
-function marksOf(
-  edges_s: readonly number[],
-  pieces: readonly { readonly from_s: number; readonly to_s: number; readonly mode: Mode }[],
-): number[] {
-  const modeAt = (t_s: number): Mode =>
-    pieces.find((piece) => piece.from_s <= t_s && t_s < piece.to_s)?.mode ?? 'stand';
-  const last = edges_s[edges_s.length - 1] as number;
-  const turns = edges_s.filter((t_s) => modeAt(t_s - 1) !== modeAt(t_s + 1) || t_s === last);
-  const kept = evenly(turns, MOST_MARKS);
-  const others = edges_s.filter((t_s) => !kept.includes(t_s));
-  const more = MOST_MARKS - kept.length;
-  return [...kept, ...(more > 0 ? evenly(others, more) : [])].sort((a, b) => a - b);
-}
-
-/** At most so many of a list, evenly, the last among them. */
-function evenly<T>(list: readonly T[], most: number): T[] {
-  if (list.length <= most) return [...list];
-  return Array.from(
-    { length: most },
-    (_, i) => list[Math.round(((i + 1) * list.length) / most) - 1] as T,
-  );
-}
-
-/** Points of the state of charge, the first and the last among them. */
-function thinned<T>(points: readonly T[]): T[] {
-  if (points.length <= MOST_POINTS) return [...points];
-  return [points[0] as T, ...evenly(points.slice(1), MOST_POINTS - 1)];
 }

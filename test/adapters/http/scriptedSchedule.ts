@@ -15,6 +15,8 @@ export function scriptedSchedule(ask: ScheduleAsk, now_ms: number): Schedule {
   return {
     certainty: ask.certainty,
     ...{ probability: 0.75, stores_probability: 0.8, ramp_MWh_el: 0.01 },
+    ...{ planned_net_MWh_el: 1.5, expected_net_MWh_el: 1.3, net_MWh_el: 1.4 },
+    ...{ between_MWh_el: 0.03, ramps_between_MWh_el: 0.02 },
     unmet: [
       {
         ...{ block: 0, cause: 'start_up', from: views[0]!.from, to: views[0]!.to },

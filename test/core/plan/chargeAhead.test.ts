@@ -33,7 +33,8 @@ function along(marks_s: readonly number[]): ChargeAhead[] {
   const command = planner.command(LEGS);
   const watched = watchedMarches(outlook, command, beyond_s, edges_s, marks_s);
   const course = watched.best();
-  return chargesAhead(outlook, command, course, watched, edges_s, marks_s);
+  const points = { times_s: edges_s, charges: watched.edges.charges };
+  return chargesAhead(outlook, command, course, watched, points, marks_s);
 }
 
 let everywhere: ChargeAhead[];

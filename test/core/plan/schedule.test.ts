@@ -72,6 +72,12 @@ describe('a schedule of two blocks, by hand', () => {
       expect(block.net_MWh_el).toBeCloseTo(energy, 12);
       expect(block.expected_shortfall_MWh_el).toBe(0);
     }
+    // Outside: ramp down 30 kW x 300 s/2 = 4.5 MJ; 7.2 MJ of the start and 300 W over 2400 s drawn.
+    expect(found.ramps_between_MWh_el).toBeCloseTo(0.00125, 12);
+    expect(found.between_MWh_el).toBeCloseTo(0.002 + 0.0002, 12);
+    expect(found.planned_net_MWh_el).toBeCloseTo(0.09, 12);
+    expect(found.net_MWh_el).toBeCloseTo(0.055 + 0.03125 + 0.00125 - 0.0022, 12);
+    expect(found.expected_net_MWh_el).toBeCloseTo(found.net_MWh_el, 12);
     expect(found).toMatchObject({ probability: 1, stores_probability: 1 });
     expect(found.first_shortfall).toEqual({ p50: null, certain: null });
     expect(found.runs).toHaveLength(1);
@@ -123,6 +129,23 @@ describe('a schedule of two blocks, by hand', () => {
     expect(found.blocks[0]!.net_MWh_el).toBeCloseTo(0.18, 9);
     // The time is written to the millisecond: 60 kW x 1 ms / 3.6e6 = 1.7e-8 MWh.
     expect(found.blocks[1]!.net_MWh_el).toBeCloseTo(0.06 * (t - 3) - 0.0003 * (5 - t), 7);
+    // Where it stops the unit's charge is told too: it is all but used up, and stays so.
+    expect(found.charge.map(({ time }) => time)).toContain(found.runs[0]!.stops);
+    const [, edge, stop, end] = found.charge;
+    expect(hoursAfter(plain, edge!.time)).toBe(3);
+    expect(stop!.time).toBe(found.runs[0]!.stops);
+    expect(stop!.state_of_charge).toBeLessThan(edge!.state_of_charge);
+    expect(stop!.state_of_charge).toBeLessThan(0.03);
+    for (const id of ['hot', 'cold']) {
+      const [before, then, after] = [edge!, stop!, end!].map(({ stores }) => stores[id]!.soc);
+      expect(then).toBeLessThan(before!);
+      // The step that it stops in is marched to its end: 240 s of 3.3 h; and standing loses a little.
+      expect(Math.abs(after! - then!)).toBeLessThan(0.6 * (240 / 11_880) + 0.01);
+    }
+    // What is expected of the whole: what is expected of the blocks, less standing after the stop.
+    expect(found.between_MWh_el).toBeCloseTo(0, 12);
+    const [one, two] = found.blocks.map(({ expected_MWh_el }) => expected_MWh_el);
+    expect(found.expected_net_MWh_el).toBeCloseTo(one! + two! - 0.0003 * (5 - t), 9);
     const { p50, certain } = found.first_shortfall;
     expect(p50).toMatchObject({ cause: found.runs[0]!.ends_by });
     // Neighbours by time: the size belongs to t within a fortieth of the points either side.
@@ -185,6 +208,11 @@ describe('a schedule', () => {
           if (block.mode === 'stand') expect(planned_MWh_el + expected_MWh_el).toBe(0);
           if (block.met_probability === 1) expect(short).toBeLessThan(1e-12);
         }
+        // The whole is the integral of net power, whatever stops: blocks, what is between, ramps there.
+        const net = found.blocks.reduce((sum, { net_MWh_el }) => sum + net_MWh_el, 0);
+        const { between_MWh_el, ramps_between_MWh_el } = found;
+        expect(net - between_MWh_el + ramps_between_MWh_el).toBeCloseTo(found.net_MWh_el, 12);
+        expect(between_MWh_el).toBeGreaterThanOrEqual(-1e-12);
         const met = found.blocks.map(({ met_probability }) => met_probability);
         expect(found.probability).toBeLessThanOrEqual(Math.min(...met) + 1e-12);
         expect(found.probability).toBeLessThanOrEqual(found.stores_probability);

@@ -110,6 +110,19 @@ export const scheduleSchema = z.object({
     'That the stores carry all runs to their end, jointly, as far as the machine can be commanded',
   ),
   ramp_MWh_el: z.number().describe('What ramps take from the blocks, in all: no shortfall'),
+  planned_net_MWh_el: z.number().describe('As asked for in the blocks, + = given'),
+  expected_net_MWh_el: z
+    .number()
+    .describe('Mean of the whole, + = given, all that is drawn included'),
+  net_MWh_el: z
+    .number()
+    .describe(
+      'Most likely, + = given: the net of all blocks, less between_MWh_el, plus ramps_between_MWh_el',
+    ),
+  between_MWh_el: z
+    .number()
+    .describe('Drawn outside the blocks: start-ups, change-overs and standing, at least 0'),
+  ramps_between_MWh_el: z.number().describe('Of ramps outside the blocks, + = given'),
   unmet: z
     .array(
       z.object({
@@ -162,7 +175,7 @@ export const scheduleSchema = z.object({
         stores: z.record(z.string(), z.object({ soc: z.number(), soc_sigma: z.number() })),
       }),
     )
-    .describe('Now and at the edges of blocks, on the most likely course'),
+    .describe('Now, at the edges of blocks and where runs stop, on the most likely course'),
   charge_left_out: z.number().int(),
   nearest: z
     .object({
