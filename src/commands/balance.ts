@@ -20,10 +20,15 @@ interface BalanceOptions extends AheadOptions {
 }
 
 /** A number of the command line, undefined where it is not given. */
-function numeral(option: string, text: string | undefined, least: 'above 0' | '0 or more') {
+function numeral(
+  option: string,
+  text: string | undefined,
+  least: 'above 0' | '0 or more' | 'of any sign',
+) {
   if (text === undefined) return undefined;
   const value = text.trim() === '' ? Number.NaN : Number(text);
-  if (Number.isFinite(value) && (least === 'above 0' ? value > 0 : value >= 0)) return value;
+  const enough = least === 'above 0' ? value > 0 : least === 'of any sign' || value >= 0;
+  if (Number.isFinite(value) && enough) return value;
   throw new RockhourError(
     'USAGE',
     `${option} is ${JSON.stringify(text)}; expected a number, ${least}`,
@@ -44,7 +49,7 @@ async function answerOf(options: BalanceOptions): Promise<AheadHead & Balance> {
   const power_MW = numeral('--power', options.power, 'above 0');
   const charge_MWh_el = numeral('--charge', options.charge, 'above 0');
   const price = numeral('--price', options.price, '0 or more');
-  const charging = numeral('--charging-price', options.chargingPrice, '0 or more');
+  const charging = numeral('--charging-price', options.chargingPrice, 'of any sign');
   if (charging !== undefined && price === undefined) {
     throw new RockhourError('USAGE', '--charging-price goes with --price, of energy given');
   }
@@ -93,7 +98,10 @@ export function register(program: Command): void {
     .option('--power <MW>', 'power of the discharge (default: rated)')
     .option('--charge <MWh>', 'MWh_el that a usual charge takes (default: for the rated energy)')
     .option('--price <number>', 'price of energy given per MWh_el; without it MWh_el alone')
-    .option('--charging-price <number>', 'price of energy taken per MWh_el (default: the same)')
+    .option(
+      '--charging-price <number>',
+      'price of energy taken per MWh_el, may be below 0 (default: the same)',
+    )
     .option('--json', 'answer as one line of JSON')
     .action(balance);
 }

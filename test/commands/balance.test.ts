@@ -50,7 +50,9 @@ describe('rockhour headroom, capability and balance, from a recording of one sto
   });
 
   it('balance: what a flush wins, and no mismatch', async () => {
-    const { stdout, code } = await rockhour(['balance', ...from, '--price', '100']);
+    const { stdout, code } = await rockhour([
+      ...['balance', ...from, '--price', '100', '--charging-price', '-20'],
+    ]);
     expect(code).toBe(0);
     expect(stdout).toContain('Usual cycle: takes ');
     expect(stdout).toMatch(/^full charge +-?\d+\.\d\d /m);

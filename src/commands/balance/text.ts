@@ -38,12 +38,28 @@ function flushLines({ flush }: Balance): string[] {
     '',
     'Flushing the fronts, against going on as usual:',
     table(
-      ['first', 'h more', 'takes MWh_el', 'gives MWh_el', 'costs MWh_el', ...gains, 'pays after'],
+      [
+        'first',
+        'h more',
+        'takes MWh_el',
+        'gives MWh_el',
+        'costs MWh_el',
+        ...gains,
+        'pays after cycles',
+      ],
       rows,
     ),
     `Each usual cycle then gives ${as_usual.following_MWh_el.map(f2).join(', ')} MWh_el; the columns of cycles say how much more.`,
     ...money,
   ];
+}
+
+/** The rule that ends the stores together may be another than that of the store that is empty first. */
+function endsTogether({ together, alone, ends_first }: Mismatch): string {
+  const own = ends_first === null ? undefined : alone[ends_first]?.ends_by;
+  return own === together.ends_by
+    ? ''
+    : `; together they end by ${together.ends_by}, each giving the machine the gas that it then has`;
 }
 
 function mismatchLines(mismatch: Mismatch | null, reason: string | null): string[] {
@@ -59,7 +75,7 @@ function mismatchLines(mismatch: Mismatch | null, reason: string | null): string
   const matched = mismatch.ends_first === null;
   const words = matched
     ? 'The stores match to a minute.'
-    : `Store ${mismatch.ends_first} ends a discharge; the hot one could go on ${f2(mismatch.mismatch_h)} h longer than the cold one${mismatch.mismatch_h < 0 ? ' (below 0: shorter)' : ''}.`;
+    : `Each run alone, store ${mismatch.ends_first} is empty first, the other ${f2(Math.abs(mismatch.mismatch_h))} h later${endsTogether(mismatch)}.`;
   const left =
     stranded === null
       ? []

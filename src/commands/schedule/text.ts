@@ -17,7 +17,17 @@ function runsText({ runs, reserve_looked_hours }: Schedule): string[] {
     [run.reserve_hours.p90, run.reserve_hours.p50, run.reserve_hours.p10].map((hours) =>
       hours === null ? more : hours.toFixed(2),
     );
-  const header = ['run', 'from', 'to', 'holds', 'h past p90', 'p50', 'p10', 'ends by', 'stops'];
+  const header = [
+    'run',
+    'from',
+    'to',
+    'holds',
+    'h past p90',
+    'h past p50',
+    'h past p10',
+    'ends by',
+    'stops',
+  ];
   const rows = runs.map((run) => [
     ...[run.mode, run.from, run.to, percent(run.probability), ...reserve(run)],
     ...[run.ends_by ?? 'nothing near', run.stops ?? 'no'],
@@ -27,7 +37,8 @@ function runsText({ runs, reserve_looked_hours }: Schedule): string[] {
 
 function blocksText(schedule: Schedule): string[] {
   const points = new Map(schedule.charge.map((point) => [point.time, point]));
-  const header = ['from', 'to', 'mode', 'MW_el', 'MWh_el', 'expected', 'certain', 'short', 'ramp'];
+  const energies = ['planned', 'expected', 'certain', 'short', 'ramp'].map((of) => `${of} MWh_el`);
+  const header = ['from', 'to', 'mode', 'MW_el', ...energies];
   const rows = schedule.blocks.map((block) => {
     const at = points.get(block.to);
     return [

@@ -38,13 +38,14 @@ export interface Balance {
 }
 
 /**
- * @throws RangeError for a price below 0 or not finite; see usualCycle
+ * @throws RangeError for a price that is not finite, or of energy given below 0; see usualCycle
  */
 export function balanceOf(context: PlanContext, ask: BalanceAsk): Balance {
   for (const [name, price] of Object.entries(ask.prices ?? {})) {
-    if (!(price >= 0 && Number.isFinite(price))) {
-      throw new RangeError(`${name} = ${price}: expected a finite number, 0 or more`);
-    }
+    // Who takes energy at a price below 0 is paid for it.
+    const any = name === 'charging_price_per_MWh_el';
+    if (Number.isFinite(price) && (any || price >= 0)) continue;
+    throw new RangeError(`${name} = ${price}: expected a finite number${any ? '' : ', 0 or more'}`);
   }
   const usual = usualCycle(context, ask);
   const mismatch = mismatchAnswer(usual);

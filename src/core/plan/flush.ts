@@ -6,7 +6,7 @@ import { type RunFigures, runFigures, toEmpty, type Usual, usualCharge } from '.
 export interface Prices {
   /** Of energy given, per MWh_el. */
   readonly price_per_MWh_el: number;
-  /** Of energy taken; absent: the same. */
+  /** Of energy taken, any sign: below 0 who takes is paid; absent: the same. */
   readonly charging_price_per_MWh_el?: number;
 }
 
@@ -27,7 +27,10 @@ export interface Flush {
   readonly cost_MWh_el: number;
   /** More given by each following cycle from the same usual charge; below 0 = less. */
   readonly gains_MWh_el: number[];
-  /** After how many following cycles the gains have made up for the cost; null: not in those marched. */
+  /**
+   * After how many following cycles the gains have made up for the cost, for good: in money, lost time
+   * included, where there are prices, else in MWh_el; null: not in those marched.
+   */
   readonly pays_after_cycles: number | null;
   readonly money: FlushMoney | null;
 }
@@ -37,6 +40,7 @@ export interface FlushMoney {
   readonly energy_cost: number;
   /** What usual cycles would have earned in the hours it takes more; 0 where they earn nothing. */
   readonly lost_time_cost: number;
+  /** More sold, and less bought, by each following cycle. */
   readonly gains: number[];
 }
 
@@ -148,6 +152,11 @@ function weighed(
     const less = usual.charge.energy_J - charge.energy_J;
     return (discharge.energy_J - usual.discharge.energy_J + eta * less) / J_PER_MWH;
   });
+  const money = prices === null ? null : moneyOf(prices);
+  const inAll: [number, readonly number[]] =
+    money === null
+      ? [cost_MWh_el, gains_MWh_el]
+      : [money.energy_cost + money.lost_time_cost, money.gains];
   // As usual charged as far as the rules allow, or not at all: the very same runs.
   const same = takes_MWh_el === 0 && gives_MWh_el === 0;
   return {
@@ -159,8 +168,8 @@ function weighed(
     takes_hours,
     cost_MWh_el,
     gains_MWh_el,
-    pays_after_cycles: same ? null : paysAfter(cost_MWh_el, gains_MWh_el),
-    money: prices === null ? null : moneyOf(prices),
+    pays_after_cycles: same ? null : paysAfter(...inAll),
+    money,
   };
 
   function moneyOf({ price_per_MWh_el: sold, charging_price_per_MWh_el: bought = sold }: Prices) {
@@ -171,7 +180,12 @@ function weighed(
     return {
       energy_cost: takes_MWh_el * bought - gives_MWh_el * sold,
       lost_time_cost: Math.max(0, takes_hours) * perHour,
-      gains: gains_MWh_el.map((gain) => gain * sold),
+      gains: own.following.map((cycle, n) => {
+        const usual = base.following[n] as Programme['following'][number];
+        const more = cycle.discharge.energy_J - usual.discharge.energy_J;
+        const less = usual.charge.energy_J - cycle.charge.energy_J;
+        return (more * sold + less * bought) / J_PER_MWH;
+      }),
     };
   }
 }

@@ -100,7 +100,7 @@ describe('GET /api/units/{unit}/balance', () => {
   it('answers with flush and mismatch of two stores, money where there are prices', async () => {
     const { get, asked } = await app();
     const query = 'power_MW=0.05&charge_MWh_el=0.3&price_per_MWh_el=100';
-    const url = `/api/units/two/balance?${query}&charging_price_per_MWh_el=20.5`;
+    const url = `/api/units/two/balance?${query}&charging_price_per_MWh_el=-20.5`;
     const answer = balanceSchema.strict().parse((await get(url)).json());
     expect(asked).toEqual([
       {
@@ -108,7 +108,7 @@ describe('GET /api/units/{unit}/balance', () => {
         ask: {
           power_W: 0.05e6,
           charge_J: 0.3 * 3.6e9,
-          prices: { price_per_MWh_el: 100, charging_price_per_MWh_el: 20.5 },
+          prices: { price_per_MWh_el: 100, charging_price_per_MWh_el: -20.5 },
         },
       },
     ]);
@@ -132,6 +132,12 @@ describe('GET /api/units/{unit}/balance', () => {
     ['charge_MWh_el=0', 'charge_MWh_el', 'MWh_el above 0 that a usual charge takes'],
     ['price_per_MWh_el=dear', 'price_per_MWh_el', 'a price of energy given, 0 or more'],
     ['charging_price_per_MWh_el=3', 'charging_price_per_MWh_el', 'price_per_MWh_el beside it'],
+    [
+      'price_per_MWh_el=3&charging_price_per_MWh_el=1e3',
+      'charging_price_per_MWh_el',
+      'a price of energy taken, of any sign',
+    ],
+    ['price_per_MWh_el=-3', 'price_per_MWh_el', 'a price of energy given, 0 or more'],
   ])('refuses %s with what would be right', async (query, field, expected) => {
     const { get, asked } = await app();
     const answer = await get(`/api/units/two/balance?${query}`);

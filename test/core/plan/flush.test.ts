@@ -75,10 +75,25 @@ describe.each([
   });
 
   it('has paid where its gains are more than its cost', () => {
-    for (const { cost_MWh_el, gains_MWh_el, pays_after_cycles } of ways) {
-      const net = gains_MWh_el.reduce((sum, gain) => sum + gain, -cost_MWh_el);
+    for (const { money, pays_after_cycles } of ways) {
+      const cost = money!.energy_cost + money!.lost_time_cost;
+      const net = money!.gains.reduce((sum, gain) => sum + gain, -cost);
       expect(pays_after_cycles !== null).toBe(net >= 0);
     }
+  });
+
+  it('pays by the prices, not by MWh_el, where they are given', () => {
+    const prices = { price_per_MWh_el: 0, charging_price_per_MWh_el: -50 };
+    const [charge] = balanceOf(context, { charge_J: charge_MWh * J_PER_MWH, prices }).flush.ways;
+    const { takes_MWh_el, takes_hours, money } = charge!;
+    // Energy given is worth nothing, energy taken is paid for: only the lost time costs.
+    expect(money!.energy_cost).toBeCloseTo(-50 * takes_MWh_el, 8);
+    expect(takes_hours).toBeGreaterThan(0);
+    const cost = money!.energy_cost + money!.lost_time_cost;
+    let net = -cost;
+    const sums = [net, ...money!.gains.map((gain) => (net += gain))];
+    const short = sums.findLastIndex((sum) => sum < 0);
+    expect(charge!.pays_after_cycles).toBe(short === sums.length - 1 ? null : short + 1);
   });
 
   it('is none where the usual charge is a full one already', () => {

@@ -8,7 +8,7 @@ import { answerHead, quantilesSchema, staleField } from './plan.js';
 function numeral(expected: string, least: (value: number) => boolean) {
   return z
     .string({ error: expected })
-    .regex(/^\d+(\.\d+)?$/, { error: expected })
+    .regex(/^-?\d+(\.\d+)?$/, { error: expected })
     .describe(expected)
     .transform(Number)
     .refine((value) => least(value) && Number.isFinite(value), { error: expected });
@@ -22,7 +22,10 @@ export const balanceQuery = z
     power_MW: numeral('a power in MW above 0, of the discharge', above0).optional(),
     charge_MWh_el: numeral('MWh_el above 0 that a usual charge takes', above0).optional(),
     price_per_MWh_el: numeral('a price of energy given, 0 or more', least0).optional(),
-    charging_price_per_MWh_el: numeral('a price of energy taken, 0 or more', least0).optional(),
+    charging_price_per_MWh_el: numeral(
+      'a price of energy taken, of any sign',
+      () => true,
+    ).optional(),
     stale: staleField,
   })
   .refine(
@@ -60,7 +63,12 @@ const flushSchema = z.object({
       gains_MWh_el: z
         .array(z.number())
         .describe('More given by each following cycle from the same usual charge'),
-      pays_after_cycles: z.number().nullable().describe('null: not within those marched'),
+      pays_after_cycles: z
+        .number()
+        .nullable()
+        .describe(
+          'Where there are prices, in money with the lost time, else in MWh_el; null: not within those marched',
+        ),
       money: z
         .object({
           energy_cost: z.number(),
