@@ -40,6 +40,12 @@ export interface Episode {
   readonly times_s: Float64Array;
   readonly first_s: number;
   readonly ends_by: EndCause;
+  /**
+   * Least margin of the rule `flow` from when rules hold until the run ends, and when: power at the
+   * greatest flow less the power commanded [W], below 0 where that flow is not enough; Infinity =
+   * rules never held.
+   */
+  readonly closest: Closest;
   /** When the unit stopped before its commanded end; null = it did not. */
   readonly stopped_s: number | null;
   /** From when on it gave or took less than commanded, at its greatest flow; null = never. */
@@ -49,6 +55,11 @@ export interface Episode {
    * stop and past the commanded end too; empty where that flow is never needed.
    */
   readonly shares: readonly DeratedShare[];
+}
+
+export interface Closest {
+  readonly margin_W: number;
+  readonly t_s: number;
 }
 
 export interface DeratedShare {
@@ -71,6 +82,7 @@ export interface MarchOptions {
   readonly each?: (t_s: number, ahead: BedsAhead, flow_kg_s: number) => void;
 }
 
+const FLOW = RULES.indexOf('flow');
 /** Until the lids are swept a step is taken in so many parts. */
 const SWEEP_PARTS = 5;
 /** After a run has ended the other rules are followed for this share of it longer. */
@@ -102,6 +114,7 @@ export interface Run {
   flow: number;
   first: number;
   derated: number | null;
+  closest: Closest;
   readonly shares: DeratedShare[];
   readonly times: Float64Array;
   readonly before: Float64Array;
@@ -202,6 +215,7 @@ export function marchEpisode(
       first_s: best,
       ends_by: cause,
       stopped_s: stopped,
+      closest: (held ?? running).run.closest,
       derated_s: running.run.derated,
       shares: on.run.shares,
     },
@@ -238,6 +252,7 @@ function startRun(model: AheadModel, ahead: BedsAhead, direction: Direction, fro
     flow: 0,
     first: Number.POSITIVE_INFINITY,
     derated: null,
+    closest: { margin_W: Number.POSITIVE_INFINITY, t_s: from_s },
     shares: [],
     times: new Float64Array(RULES.length).fill(Number.POSITIVE_INFINITY),
     before: new Float64Array(RULES.length).fill(Number.NaN),
@@ -295,6 +310,8 @@ function stepRun(
     run.swept = true;
   }
   if (run.swept) noteBreaks(model, run, margins);
+  const margin_W = margins[FLOW] as number;
+  if (run.swept && margin_W < run.closest.margin_W) run.closest = { margin_W, t_s: t };
   const greatest = needed > most ? Math.max(0, powerOf(model, direction, most, work)) : power_W;
   const least = limits[direction].power_min_W || LEAST_SHARE * power_W;
   const tooLittle = needed > most && (!(work > 0) || greatest < Math.min(least, power_W));

@@ -6,6 +6,7 @@ import type { Episode } from './episode.js';
 import { NORMAL_COUNT } from './latinNormals.js';
 import type { Outlook } from './outlook.js';
 import {
+  closestFlows,
   covarianceOf,
   type Marches,
   type PlanSpread,
@@ -54,7 +55,7 @@ export function evaluate(
   beyond_s: number,
 ): Evaluation {
   const course = marches.best();
-  const times = ruleTimes(course).filter((q) =>
+  const times = [...ruleTimes(course), ...closestFlows(course, command)].filter((q) =>
     isAsked(command, course.episodes[q.episode] as Episode),
   );
   const slopes = responseOf(outlook.model, marches, times);
@@ -81,20 +82,27 @@ function samplesOf(
   const stop_s = never();
   const derate_s = never();
   const rule = episodes.map(() => new Int8Array(NORMAL_COUNT).fill(-1));
-  const samples = ruleSamples(spread).map((values, a) => {
-    const { episode: e, rule: r } = spread.times[a] as (typeof spread.times)[number];
-    return { e, rule: r, values };
+  const all = ruleSamples(spread).map((values, a) => {
+    const { episode: e, rule: r, closest_s } = spread.times[a] as (typeof spread.times)[number];
+    return { e, rule: r, values, reached: closest_s === undefined };
   });
-  for (const { e, rule: r, values } of samples) {
+  for (const { e, rule: r, values, reached } of all) {
     const own = r === FLOW ? derate_s : stop_s;
+    const { held_s, times_s } = episodes[e] as Episode;
+    // Broken by the best march alone: where the margin is above 0 there is no break.
+    const touch =
+      r === FLOW && reached && (times_s[FLOW] as number) < held_s
+        ? all.find((one) => one.e === e && !one.reached)?.values
+        : undefined;
     values.forEach((value, k) => {
+      if (touch?.[k] === Number.POSITIVE_INFINITY) return;
       if (value < (own[e]?.[k] as number)) (own[e] as Float64Array)[k] = value;
       if (!(value < (first_s[e]?.[k] as number))) return;
       (first_s[e] as Float64Array)[k] = value;
       (rule[e] as Int8Array)[k] = r;
     });
   }
-  return { first_s, rule, stop_s, derate_s, samples };
+  return { first_s, rule, stop_s, derate_s, samples: all.filter(({ reached }) => reached) };
 }
 
 /**

@@ -12,7 +12,7 @@ import type { Command } from './command.js';
 import type { Course } from './course.js';
 import type { Delivered } from './episode.js';
 import { latinNormals, NORMAL_COUNT } from './latinNormals.js';
-import type { Change, Outlook } from './outlook.js';
+import { type Change, type Outlook, STEP_S } from './outlook.js';
 
 /** A rule's time in a run of a plan. */
 export interface RuleTime {
@@ -20,8 +20,10 @@ export interface RuleTime {
   readonly episode: number;
   readonly rule: number;
   readonly cause: EndCause;
-  /** By the best march [s from the plan's start]. */
+  /** By the best march [s from the plan's start]; of a closest approach its margin [W]. */
   readonly time_s: number;
+  /** When the rule is closest to breaking, or beyond it by most [s]; absent = this is a time. */
+  readonly closest_s?: number;
 }
 
 /** Where the rules of a plan's runs stand, and how surely: jointly Gaussian. */
@@ -32,6 +34,11 @@ export interface PlanSpread {
   readonly covariance: readonly Float64Array[];
 }
 
+const FLOW = RULES.indexOf('flow');
+/** Machine and meter are known far better than to this share of their power. */
+const NEAR = 0.25;
+/** The last step of a run begins before its end. */
+const END_STEPS = 2;
 export const PROBE_LOG = 0.01;
 export const PROBE_AMBIENT_K = 2;
 /** Ambient temperature over the hours ahead against that of now [K]: common practice, no source. */
@@ -81,6 +88,24 @@ export function ruleTimes(course: Course): RuleTime[] {
   );
 }
 
+/**
+ * Where runs come close to their greatest flow, or a little beyond it, at a time before their end: a
+ * time of the break tells nothing then, as it may be there or not; the margin, which is smooth,
+ * tells. Towards the end the margin falls with the fronts, and the time of the break is the better
+ * one, where there is any.
+ */
+export function closestFlows(course: Course, command: Command): RuleTime[] {
+  return course.episodes.flatMap((episode, e): RuleTime[] => {
+    const { times_s, closest, from_s, to_s, held_s, stopped_s } = episode;
+    const { margin_W, t_s } = closest;
+    const before_end = Math.min(held_s, stopped_s ?? held_s) - t_s > END_STEPS * STEP_S;
+    const reached = Number.isFinite(times_s[FLOW] as number);
+    if (reached && !before_end) return [];
+    if (!(Math.abs(margin_W) < NEAR * powerAbout(command, from_s, to_s))) return [];
+    return [{ episode: e, rule: FLOW, cause: 'flow', time_s: margin_W, closest_s: t_s }];
+  });
+}
+
 /** Slopes of the given times, from marches that differ in one thing each. */
 export function responseOf(
   model: UnitModel,
@@ -94,7 +119,11 @@ export function responseOf(
     }));
     return { stores, work: { discharge: none, charge: none }, ambient: none };
   }
-  const at = (of: Course, q: RuleTime): number => of.episodes[q.episode]?.times_s[q.rule] as number;
+  const at = (of: Course, q: RuleTime): number => {
+    const episode = of.episodes[q.episode];
+    const value = q.closest_s === undefined ? episode?.times_s[q.rule] : episode?.closest.margin_W;
+    return value as number;
+  };
   const base = marches.march();
   const slope = (of: Course, from: Course, delta: number): number[] =>
     times.map((q) => {
@@ -137,7 +166,9 @@ export function covarianceOf(
     return addProfile(store, own, response.stores[s] as StoreResponse, covariance);
   });
   factors.push([...work.discharge], [...work.charge]);
-  const length = (q: RuleTime): number => q.time_s - (course.episodes[q.episode]?.from_s as number);
+  // A margin is the machine's, not the fronts': it has no share of the model's error in time.
+  const length = (q: RuleTime): number =>
+    q.closest_s === undefined ? q.time_s - (course.episodes[q.episode]?.from_s as number) : 0;
   times.forEach((a, i) => {
     times.forEach((b, j) => {
       let sum = Math.max(0, length(a)) * Math.max(0, length(b)) * MODEL_SIGMA ** 2;
@@ -168,7 +199,7 @@ function addUnseen(
   const soc = unseenSigma(store, state.stores[s] as UnitState['stores'][number]);
   const { unit } = model;
   const sigma = times.map((q) => {
-    if (q.cause !== own && q.cause !== 'flow') return 0;
+    if (q.closest_s !== undefined || (q.cause !== own && q.cause !== 'flow')) return 0;
     const episode = course.episodes[q.episode] as Course['episodes'][number];
     const { from_s, to_s, derated_s, stopped_s } = episode;
     const until_s = Math.min(q.time_s, to_s);
@@ -221,8 +252,8 @@ export interface Breaks {
 /**
  * Rules' times over fixed points of their joint distribution.
  *
- * @returns per time of `spread.times`, `NORMAL_COUNT` values [s], none before its run begins; points
- *   of the same index belong together
+ * @returns per time of `spread.times`, `NORMAL_COUNT` values [s], none before its run begins, Infinity
+ *   where a closest approach breaks nothing; points of the same index belong together
  */
 export function ruleSamples(spread: PlanSpread): Float64Array[] {
   const { times, covariance, course } = spread;
@@ -235,6 +266,10 @@ export function ruleSamples(spread: PlanSpread): Float64Array[] {
       const weight = factor[a]?.[b] as number;
       const column = points[b] as Float64Array;
       for (let k = 0; k < NORMAL_COUNT; k++) own[k]! += weight * (column[k] as number);
+    }
+    const { closest_s } = q;
+    if (closest_s !== undefined) {
+      return own.map((margin_W) => (margin_W < 0 ? closest_s : Number.POSITIVE_INFINITY));
     }
     return own.map((value) => Math.max(from_s, value));
   });

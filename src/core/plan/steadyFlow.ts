@@ -22,7 +22,9 @@ export function withSteadyFlow(
   const stand_ins = times.map((q, i) => {
     const { from_s } = course.episodes[q.episode] as Course['episodes'][number];
     const own = { from: i, factor: 1 };
-    if (q.rule !== FLOW || !steps(command, course, q.episode)) return own;
+    // A margin is smooth whatever the power does.
+    if (q.rule !== FLOW || q.closest_s !== undefined) return own;
+    if (!steps(command, course, q.episode)) return own;
     let best = own;
     let nearest = Number.POSITIVE_INFINITY;
     times.forEach((other, j) => {

@@ -366,7 +366,7 @@ describe('the nearest schedule that holds', () => {
   });
 
   it.each([0.9, 0.99])(
-    'is found just below a power at which the greatest flow is needed at once, with %f',
+    'is found below a power that may need more than the greatest flow at once, with %f',
     (certainty) => {
       const charge = { ...plain.limits.charge, flow_max_kg_s: 1.2 };
       const unit = { ...plain, limits: { ...plain.limits, charge } };
@@ -380,10 +380,19 @@ describe('the nearest schedule that holds', () => {
       expect(fails).toBeLessThan(200);
       for (const kW of [fails, fails * 1.0005, fails * 1.002, fails * 1.01, fails * 1.1]) {
         const { nearest, runs, nearest_reason } = asked(kW);
-        expect([runs[0]!.ends_by, nearest_reason]).toEqual(['flow', null]);
+        expect(nearest_reason).toBeNull();
+        // Most likely it just holds; a tenth more it does not.
+        expect(runs[0]!.ends_by).toBe(kW > 1.05 * fails ? 'flow' : null);
         expect(nearest!.probability).toBeGreaterThanOrEqual(certainty);
-        // The greatest to a per mille of the power asked for; meter and machine shift it by another.
-        expect(Math.abs((nearest!.factor_charge * kW) / holds - 1)).toBeLessThan(0.0015);
+        // No surer than by three tenths of the risk, or by a per mille of the power: that is at most
+        // 0.006 at 0.9 and 0.001 at 0.99, with a sigma of 3 %.
+        const finest = certainty > 0.95 ? 0.001 : 0.006;
+        const most = certainty + 0.3 * (1 - certainty) + finest;
+        expect(nearest!.probability).toBeLessThanOrEqual(most);
+        // Three tenths of the risk are up to a fifth of that sigma; a plan is calibrated at the power
+        // asked for, where a tenth more shifts meter and machine by as much again.
+        const off = Math.abs((nearest!.factor_charge * kW) / holds - 1);
+        expect(off).toBeLessThan(kW > 1.05 * fails ? 0.015 : 0.01);
       }
     },
   );
