@@ -44,6 +44,10 @@ describe('rockhour headroom, capability and balance, from a recording of one sto
     expect(stdout.trimEnd()).not.toContain('\n');
     const answer = JSON.parse(stdout);
     expect(answer).toMatchObject({ unit: 'air1', time: at, age_s: 0, rated_power_MW_el: 0.6 });
+    // As a daemon heads its answers.
+    expect(Date.parse(answer.valid_until)).toBe(Date.parse(at) + 600_000);
+    expect(answer.given).toContain('the machine runs');
+    expect(answer.limits.discharge).toMatchObject({ power_min_MW_el: 0.2, power_max_MW_el: 0.7 });
     expect(answer.discharge.points.length).toBeGreaterThan(1);
     expect(answer.discharge.largest_error_MW_el).toBeLessThanOrEqual(0.006);
     expect(Object.keys(answer.charge.points[0].stored_MWh_th)).toEqual(['rock']);
@@ -95,7 +99,9 @@ describe('the balance of two stores as text', () => {
     const hot = found.mismatch?.alone.hot;
     const p50 = hot?.hours.p50.toFixed(2);
     expect(text).toMatch(new RegExp(`^hot +\\d+\\.\\d\\d +${p50} `, 'm'));
-    expect(text).toContain('Store cold ends a discharge;');
+    expect(text).toMatch(
+      /^Each run alone, store cold is empty first, the other \d+\.\d\d h later/m,
+    );
     const worth = found.mismatch?.stranded?.worth_MWh_el.toFixed(2);
     expect(text).toContain(`stranded, worth ${worth} MWh_el.`);
     for (const way of ['longer charge', 'run on', 'stand']) {

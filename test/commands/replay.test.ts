@@ -200,6 +200,7 @@ describe('rockhour hours from a recording', () => {
       expect(answer.time).toBe(replayed[row].time);
       expect(answer.age_s).toBe(at ? 10 : 0);
       expect(answer.answers).toEqual([{ ...replayed[row].dispatch[0], limited_by: null }]);
+      for (const key of ['valid_until', 'given', 'limits']) expect(answer).toHaveProperty(key);
     }
   });
 
