@@ -1,9 +1,21 @@
-import type { Direction, UnitDefinition } from '../definitions.js';
+import type { Direction } from '../definitions.js';
 import { inverseNormal } from '../dispatch/normalPoints.js';
+import { closer, FINEST, isChanged, isClose, type Judged, judge } from './closer.js';
 import { type Evaluation, holding } from './evaluation.js';
 import { NORMAL_COUNT } from './latinNormals.js';
-import { directionOf, type Leg } from './leg.js';
+import type { Leg } from './leg.js';
 import type { Planner } from './planner.js';
+import {
+  type DrawnIn,
+  drawIn,
+  energyOf,
+  isNearer,
+  leastFactor,
+  runsOf,
+  type Sought,
+  scale,
+  tookOut,
+} from './sought.js';
 import { type Trial, type TrialBase, trial, trialBase } from './trial.js';
 import { withoutUnmet } from './withoutUnmet.js';
 
@@ -20,18 +32,6 @@ export interface NearestLegs {
   readonly probability: number;
 }
 
-export interface DrawnIn {
-  readonly direction: Direction;
-  readonly asked_s: number;
-  /** Start of the run where nothing of it is left. */
-  readonly end_s: number;
-}
-
-const DIRECTIONS = ['charge', 'discharge'] as const satisfies readonly Direction[];
-/** Where no least power is set a factor goes down to this. */
-const LEAST_FACTOR = 0.01;
-/** Of a factor's range, and at least a minute of a run. */
-const FINEST = 1000;
 /**
  * Full evaluations, the one of what was asked among them, marches between two of them, and further
  * evaluations where these find nothing that is close enough.
@@ -46,11 +46,6 @@ const CLOSE = 0.03;
 const TOLD = 3;
 /** Times that charging and discharging are sought in turns. */
 const TURNS = 3;
-/** Share of the risk by which what is found may be surer than asked for. */
-const SURER = 0.3;
-/** Where marches find nothing that holds: factors less this are evaluated, then four times that less. */
-const FIRST_STEP = 1 / FINEST;
-const STEP_GROWS = 4;
 
 /** Why there is no nearest schedule. */
 export const NEAREST_REASONS = ['not_allowed', 'nothing_holds', 'not_found'] as const;
@@ -115,105 +110,8 @@ export function nearestLegs(
   return energyOf(found.legs) === 0 ? 'nothing_holds' : 'not_found';
 }
 
-/** What was sought, evaluated in full. */
-interface Judged extends Sought {
-  readonly holds: boolean;
-  readonly probability: number;
-  /** That the runs of a direction hold. */
-  readonly alone: Readonly<Record<Direction, number>>;
-}
-
-function judge(
-  found: Sought,
-  { course, first_s, command }: Evaluation,
-  asked: readonly Leg[],
-  certainty: number,
-): Judged {
-  const alone = (direction?: Direction): number => holding(course.episodes, first_s, direction);
-  const probability = alone();
-  const some = energyOf(found.legs) > 0 || energyOf(asked) === 0;
-  const holds = some && probability >= certainty && command.unmet.length === 0;
-  const each = { charge: alone('charge'), discharge: alone('discharge') };
-  return { ...found, holds, probability, alone: each };
-}
-
-const isChanged = ({ factor }: Sought): boolean => factor.discharge < 1 || factor.charge < 1;
-
-/** Whether it is no surer than it must be. */
-const isClose = ({ probability }: Judged, certainty: number): boolean =>
-  probability - certainty <= SURER * (1 - certainty);
-
-/**
- * Between factors that hold and such that do not, by full evaluations: bisection until both are within
- * the `FINEST` part of each other, or what holds is hardly surer than asked for. Where nothing holds
- * yet, factors of the directions at risk are taken down first, in growing steps.
- *
- * @param known what holds, if anything does, and the least found that does not; how often to look
- */
-function closer(
-  planner: Planner,
-  legs: readonly Leg[],
-  certainty: number,
-  known: { readonly best: Judged | null; readonly failed: Judged; readonly more: number },
-): Judged | null {
-  const { unit } = planner.outlook.model;
-  const { drawn_in } = known.best ?? known.failed;
-  let { best, failed } = known;
-  const at = (of: (direction: Direction) => number): Judged => {
-    const factor = { charge: of('charge'), discharge: of('discharge') };
-    const own = withoutUnmet(planner, drawIn(scale(legs, factor), drawn_in));
-    const sought = { legs: own, factor, drawn_in };
-    return judge(sought, planner.evaluate(planner.command(own)), legs, certainty);
-  };
-  const atRisk = (direction: Direction): boolean => known.failed.alone[direction] < 1;
-  let step = FIRST_STEP;
-  for (let n = 0; n < known.more; n++) {
-    const holding_: Judged | null = best;
-    const failing = failed;
-    if (holding_ === null) {
-      const next = (direction: Direction): number => {
-        const was = failing.factor[direction];
-        if (!atRisk(direction)) return was;
-        return Math.max(leastFactor(unit, legs, direction), was * (1 - step));
-      };
-      if (DIRECTIONS.every((one) => next(one) >= failing.factor[one])) return null;
-      const found = at(next);
-      if (found.holds) best = found;
-      else failed = found;
-      step *= STEP_GROWS;
-      continue;
-    }
-    const apart = DIRECTIONS.map((one) => failing.factor[one] - holding_.factor[one]);
-    if (isClose(holding_, certainty) || !apart.some((part) => part > 1 / FINEST)) break;
-    const found = at((one) => (failing.factor[one] + holding_.factor[one]) / 2);
-    if (found.holds) best = found;
-    else failed = found;
-  }
-  return best;
-}
-
-interface Sought {
-  readonly legs: readonly Leg[];
-  readonly factor: Readonly<Record<Direction, number>>;
-  readonly drawn_in: readonly DrawnIn[];
-}
-
-/** Whether what was sought keeps more of what was asked for than another. */
-function isNearer(one: Sought, other: Sought): boolean {
-  return energyOf(one.legs) > energyOf(other.legs);
-}
-
 function sameFactors(one: Sought, other: Sought): boolean {
   return energyOf(one.legs) === energyOf(other.legs);
-}
-
-const energyOf = (legs: readonly Leg[]): number =>
-  legs.reduce((sum, { power_W, from_s, to_s }) => sum + power_W * (to_s - from_s), 0);
-
-/** Whether legs lack more than factors and drawn ends took. */
-function tookOut(found: Sought, legs: readonly Leg[]): boolean {
-  const plain = drawIn(scale(legs, found.factor), found.drawn_in);
-  return energyOf(plain) - energyOf(found.legs) > 1e-9 * energyOf(plain);
 }
 
 /**
@@ -285,14 +183,6 @@ function seek(
   return { legs: made(), factor, drawn_in: [...drawn.charge, ...drawn.discharge] };
 }
 
-/** Factor at which the smallest power of a direction is the least power. */
-function leastFactor(unit: UnitDefinition, legs: readonly Leg[], direction: Direction): number {
-  const powers = legs.filter((leg) => directionOf(leg) === direction).map((leg) => leg.power_W);
-  const least_W = unit.limits[direction].power_min_W;
-  // A hair above, so that the product is not below the least power by a rounding.
-  return Math.min(1, Math.max(LEAST_FACTOR, (least_W / Math.min(...powers)) * (1 + 1e-12)));
-}
-
 /** Sigmas of a probability; what all or none of the points do is as sure as their number tells. */
 function sigmasOf(probability: number): number {
   const edge = 0.5 / NORMAL_COUNT;
@@ -340,28 +230,6 @@ function greatest(
   return low.at;
 }
 
-function scale(legs: readonly Leg[], factor: Readonly<Record<Direction, number>>): Leg[] {
-  return legs.map((leg) => {
-    const direction = directionOf(leg);
-    return direction === null ? leg : { ...leg, power_W: leg.power_W * factor[direction] };
-  });
-}
-
-/** Runs of a direction: legs that follow each other without a break [s]. */
-function runsOf(
-  legs: readonly Leg[],
-  direction: Direction,
-): { readonly from_s: number; readonly to_s: number }[] {
-  const runs: { from_s: number; to_s: number }[] = [];
-  for (const leg of legs) {
-    if (directionOf(leg) !== direction) continue;
-    const last = runs[runs.length - 1];
-    if (last !== undefined && last.to_s === leg.from_s) last.to_s = leg.to_s;
-    else runs.push({ from_s: leg.from_s, to_s: leg.to_s });
-  }
-  return runs;
-}
-
 /** Draws in the last run's end, and those before where nothing is left of it. */
 function drawnIn(
   legs: readonly Leg[],
@@ -382,25 +250,4 @@ function drawnIn(
     return ends;
   }
   return ends;
-}
-
-/** Legs without what lies past the ends drawn in of their runs. */
-function drawIn(legs: readonly Leg[], ends: readonly DrawnIn[]): Leg[] {
-  return legs.flatMap((leg) => {
-    const direction = directionOf(leg);
-    const end = ends.find(
-      ({ direction: own, asked_s, end_s }) =>
-        own === direction && leg.to_s <= asked_s && leg.to_s > end_s && sameRun(legs, leg, asked_s),
-    );
-    if (end === undefined) return [leg];
-    return end.end_s > leg.from_s ? [{ ...leg, to_s: end.end_s }] : [];
-  });
-}
-
-/** Whether a leg belongs to the run that ends then. */
-function sameRun(legs: readonly Leg[], leg: Leg, end_s: number): boolean {
-  const direction = directionOf(leg) as Direction;
-  return runsOf(legs, direction).some(
-    (run) => run.to_s === end_s && leg.from_s >= run.from_s && leg.to_s <= run.to_s,
-  );
 }
