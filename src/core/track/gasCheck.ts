@@ -55,14 +55,16 @@ const STEEL_TIMES = 3;
  */
 const LONGER = 1.25;
 const KEPT = 0.9;
-/** Thermocouples whose own fault is no temperature of rock. Those that are off or drift may be right here. */
+/**
+ * Thermocouples whose own fault is no temperature of rock. Those that are off, drift or seem to be of
+ * another type may be right here: a wrong gas temperature has bent the rock that they were held against.
+ */
 const NO_ROCK: readonly (SensorVerdict | null)[] = [
   'open',
   'burst',
   'stuck',
   'reversed',
   'swapped',
-  'wrong_type',
   'outlier',
   'uncovered',
 ];

@@ -117,6 +117,7 @@ const MIRROR_SIGMAS = 3;
  * @param sigma_K of the innovation
  * @param noise_K of the reading alone
  * @param moving false where the movement is no evidence
+ * @param grew it came to be off little by little, as a drift does: the difference alone is no evidence
  */
 export function mirrored(
   memory: Movement,
@@ -126,13 +127,14 @@ export function mirrored(
   sigma_K: number,
   noise_K: number,
   moving: boolean,
+  grew = false,
 ): 'no' | 'suspect' | 'yes' {
   const middle = (value_K + rock_K) / 2;
   const apart = Math.abs(value_K - rock_K);
   const spread = JUNCTION_SPREAD_K + BENT * apart;
   const beside = Math.abs(middle - JUNCTION_K);
   if (!(beside <= spread)) return 'no';
-  if (apart > MIRRORED_K && beside <= spread / 2) return 'yes';
+  if (!grew && apart > MIRRORED_K && beside <= spread / 2) return 'yes';
   const { sinceRead_K, sinceModelled_K } = memory;
   const moved = Math.abs(sinceModelled_K) - 2 * deadband_K;
   if (!moving || moved < Math.max(SUSPECT_MOVES_K, MIRROR_SIGMAS * sigma_K)) return 'no';

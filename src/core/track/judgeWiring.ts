@@ -29,7 +29,16 @@ export function judgeWiring(
   const moving =
     (!slow || time_ms - memory.since_ms < DRIFT_MS) && isMovementKnown(memory, time_ms);
   const noise = evidence.noiseSigma_K ?? 0;
-  const mirror = mirrored(memory, value, rock, evidence.deadband_K, sigma, noise, moving);
+  const mirror = mirrored(
+    memory,
+    value,
+    rock,
+    evidence.deadband_K,
+    sigma,
+    noise,
+    moving,
+    verdict === 'drifting',
+  );
   memory.miswired = mirror === 'yes' ? memory.miswired + 1 : 0;
   const shown = `reads ${(value - 273.15).toFixed(1)} degC where the rock is at ${(rock - 273.15).toFixed(1)} degC`;
   if (memory.miswired >= MISWIRED_SCANS) {

@@ -76,6 +76,13 @@ describe('reversed wires', () => {
     );
   });
 
+  it('are not told by a difference alone that grew as a drift does', () => {
+    const memory = follow([250, 250], (rock) => rock);
+    const mirrorOf = (grew: boolean) => mirrored(memory, 346, 250, 0, SIGMA, SIGMA, true, grew);
+    expect(mirrorOf(false)).toBe('yes');
+    expect(mirrorOf(true)).toBe('no');
+  });
+
   it('are told at once far from the cold junction, by the voltage of any type', () => {
     for (const type of THERMOCOUPLE_TYPES) {
       for (const rock of [-120, -60, 90, 200]) {
