@@ -1,3 +1,4 @@
+import type { Command } from 'commander';
 import type { UnitDefinition } from '../core/definitions.js';
 import type { Quality } from '../core/estimate.js';
 import { answerPlan, type PlanAnswers, type PlanQuestion } from '../core/plan/ask.js';
@@ -167,4 +168,17 @@ export function headLine({ unit, time, age_s, quality, stale }: AheadHead): stri
   const age = age_s === null ? '' : `, ${Math.round(age_s)} s old`;
   const mark = stale === true ? ', STALE' : '';
   return `${unit}: estimate of ${time}${age}${mark}, quality ${quality ?? 'unknown'}`;
+}
+
+/** A command with the options that every question about what lies ahead has; `--json` is the caller's last. */
+export function aheadCommand(program: Command, name: string, description: string): Command {
+  return program
+    .command(name)
+    .description(description)
+    .option('--config <file>', 'configuration of the site (YAML); with --recording')
+    .option('--recording <file>', 'recording after whose last row, or at --at, it is asked')
+    .option('--at <time>', 'take rows up to this time (ISO 8601 with offset, or seconds)')
+    .option('--url <address>', 'ask a running daemon instead, such as http://127.0.0.1:8080')
+    .option('--unit <id>', 'unit asked for; needed where there are several')
+    .option('--stale <what>', 'where the estimate of a daemon is stale: refuse (default) or mark');
 }

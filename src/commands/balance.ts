@@ -5,6 +5,7 @@ import { RockhourError } from '../errors.js';
 import {
   type AheadHead,
   type AheadOptions,
+  aheadCommand,
   answerRecorded,
   askAhead,
   checkAheadOptions,
@@ -86,15 +87,11 @@ async function balance(options: BalanceOptions): Promise<void> {
 }
 
 export function register(program: Command): void {
-  program
-    .command('balance')
-    .description('what flushing the fronts would win back, and how the two stores match')
-    .option('--config <file>', 'configuration of the site (YAML); with --recording')
-    .option('--recording <file>', 'recording after whose last row, or at --at, it is asked')
-    .option('--at <time>', 'take rows up to this time (ISO 8601 with offset, or seconds)')
-    .option('--url <address>', 'ask a running daemon instead, such as http://127.0.0.1:8080')
-    .option('--unit <id>', 'unit asked for; needed where there are several')
-    .option('--stale <what>', 'where the estimate of a daemon is stale: refuse (default) or mark')
+  aheadCommand(
+    program,
+    'balance',
+    'what flushing the fronts would win back, and how the two stores match',
+  )
     .option('--power <MW>', 'power of the discharge (default: rated)')
     .option('--charge <MWh>', 'MWh_el that a usual charge takes (default: for the rated energy)')
     .option('--price <number>', 'price of energy given per MWh_el; without it MWh_el alone')

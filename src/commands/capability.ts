@@ -4,6 +4,7 @@ import { RockhourError } from '../errors.js';
 import {
   type AheadHead,
   type AheadOptions,
+  aheadCommand,
   answerRecorded,
   askAhead,
   checkAheadOptions,
@@ -103,15 +104,11 @@ async function capability(options: CapabilityOptions): Promise<void> {
 }
 
 export function register(program: Command): void {
-  program
-    .command('capability')
-    .description('greatest power in both directions against state of charge, for an optimiser')
-    .option('--config <file>', 'configuration of the site (YAML); with --recording')
-    .option('--recording <file>', 'recording after whose last row, or at --at, it is asked')
-    .option('--at <time>', 'take rows up to this time (ISO 8601 with offset, or seconds)')
-    .option('--url <address>', 'ask a running daemon instead, such as http://127.0.0.1:8080')
-    .option('--unit <id>', 'unit asked for; needed where there are several')
-    .option('--stale <what>', 'where the estimate of a daemon is stale: refuse (default) or mark')
+  aheadCommand(
+    program,
+    'capability',
+    'greatest power in both directions against state of charge, for an optimiser',
+  )
     .option('--tolerance <share>', 'largest error of the curves over rated power (default 0.01)')
     .option('--json', 'answer as one line of JSON')
     .action(capability);

@@ -3,6 +3,7 @@ import type { Headroom } from '../core/plan/headroom.js';
 import {
   type AheadHead,
   type AheadOptions,
+  aheadCommand,
   answerRecorded,
   askAhead,
   checkAheadOptions,
@@ -64,15 +65,11 @@ async function headroom(options: AheadOptions & { power: string }): Promise<void
 }
 
 export function register(program: Command): void {
-  program
-    .command('headroom')
-    .description('hours and MWh_el that a unit can still take at given charging powers')
-    .option('--config <file>', 'configuration of the site (YAML); with --recording')
-    .option('--recording <file>', 'recording after whose last row, or at --at, it is asked')
-    .option('--at <time>', 'take rows up to this time (ISO 8601 with offset, or seconds)')
-    .option('--url <address>', 'ask a running daemon instead, such as http://127.0.0.1:8080')
-    .option('--unit <id>', 'unit asked for; needed where there are several')
-    .option('--stale <what>', 'where the estimate of a daemon is stale: refuse (default) or mark')
+  aheadCommand(
+    program,
+    'headroom',
+    'hours and MWh_el that a unit can still take at given charging powers',
+  )
     .requiredOption('--power <MW>', 'charging powers, such as 2.4,3.6')
     .option('--json', 'answer as one line of JSON')
     .action(headroom);

@@ -4,6 +4,7 @@ import { offersAskOf } from '../core/plan/offerWords.js';
 import { RockhourError, reasonOf } from '../errors.js';
 import {
   type AheadHead,
+  aheadCommand,
   answerRecorded,
   askAhead,
   checkAheadOptions,
@@ -71,15 +72,11 @@ async function offers(options: OffersOptions): Promise<void> {
 }
 
 export function register(program: Command): void {
-  program
-    .command('offers')
-    .description('what a unit can sell: MWh_el per power, start and block at any certainty')
-    .option('--config <file>', 'configuration of the site (YAML); with --recording')
-    .option('--recording <file>', 'recording after whose last row, or at --at, it is asked')
-    .option('--at <time>', 'take rows up to this time (ISO 8601 with offset, or seconds)')
-    .option('--url <address>', 'ask a running daemon instead, such as http://127.0.0.1:8080')
-    .option('--unit <id>', 'unit asked for; needed where there are several')
-    .option('--stale <what>', 'where the estimate of a daemon is stale: refuse (default) or mark')
+  aheadCommand(
+    program,
+    'offers',
+    'what a unit can sell: MWh_el per power, start and block at any certainty',
+  )
     .option('--power <MW>', 'discharging powers, such as 1.2,1.8')
     .option('--start <times>', 'when discharges begin, ISO 8601, separated by commas; else a gate')
     .option('--closes-before <span>', 'from now until delivery may begin, such as 60min; 0 = now')

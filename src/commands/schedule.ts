@@ -6,6 +6,7 @@ import { csvValue, SCHEDULE_COLUMNS } from '../core/plan/scheduleCsv.js';
 import { fileReasonOf, RockhourError } from '../errors.js';
 import {
   type AheadHead,
+  aheadCommand,
   answerRecorded,
   askAhead,
   checkAheadOptions,
@@ -88,15 +89,11 @@ const collect = (text: string, before: readonly string[] = []): readonly string[
 ];
 
 export function register(program: Command): void {
-  program
-    .command('schedule')
-    .description('whether a list of blocks holds, where it falls short, the nearest that holds')
-    .option('--config <file>', 'configuration of the site (YAML); with --recording')
-    .option('--recording <file>', 'recording after whose last row, or at --at, it is asked')
-    .option('--at <time>', 'take rows up to this time (ISO 8601 with offset, or seconds)')
-    .option('--url <address>', 'ask a running daemon instead, such as http://127.0.0.1:8080')
-    .option('--unit <id>', 'unit asked for; needed where there are several')
-    .option('--stale <what>', 'where the estimate of a daemon is stale: refuse (default) or mark')
+  aheadCommand(
+    program,
+    'schedule',
+    'whether a list of blocks holds, where it falls short, the nearest that holds',
+  )
     .option('--blocks <file>', 'CSV with from,to,mode,power_MW_el, or JSON')
     .option('--block <text>', 'a block, such as "discharge 1.5 FROM TO"; once for each', collect)
     .option('--zone <name>', 'IANA zone of times without offset (default: of the connection)')

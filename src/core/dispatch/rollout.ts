@@ -1,11 +1,11 @@
-import { type BedWork, bedSubstep, planSubsteps } from '../bed/kernel.js';
-import { pressureDrop } from '../bed/pressureDrop.js';
-import { type BedTables, temperatureAt } from '../bed/tables.js';
+import type { BedWork } from '../bed/kernel.js';
+import type { BedTables } from '../bed/tables.js';
 import type { StoreDefinition, UnitDefinition } from '../definitions.js';
 import type { EndCause } from '../estimate.js';
 import type { Machine } from '../machine/machine.js';
-import { exchangeAtWall, shareAround, type WallModel } from '../track/wallZone.js';
+import type { WallModel } from '../track/wallZone.js';
 import { excessLag, isSwept, throughPlenum } from './plenum.js';
+import { endOfBed, greatestDrop, stepStore } from './stepStore.js';
 
 /** One tube as the rollout needs it. */
 export interface RolloutTube {
@@ -103,9 +103,13 @@ export function rollOut(
   const beforeAt = new Float64Array(RULES.length);
   const atFirst = new Float64Array(RULES.length).fill(Number.NaN);
   const plenum = input.stores.map((s, i) =>
-    Number.isFinite(s.plenum_K) ? s.plenum_K : mixedEnd(s, beds[i] as Float64Array[]),
+    Number.isFinite(s.plenum_K)
+      ? s.plenum_K
+      : endOfBed(s, beds[i] as Float64Array[], 'charge_inlet'),
   );
-  const delivered = input.stores.map((s, i) => mixedEnd(s, beds[i] as Float64Array[]));
+  const delivered = input.stores.map((s, i) =>
+    endOfBed(s, beds[i] as Float64Array[], 'charge_inlet'),
+  );
   const hotIndex = input.stores.findIndex((s) => s.store.kind === 'hot');
   const coldIndex = input.stores.findIndex((s) => s.store.kind === 'cold');
   let swept = false;
@@ -125,7 +129,7 @@ export function rollOut(
     const point = machine.operate('discharge', outlets, input.ambient_K);
     const work = point.specificWork_J_kg * input.workFactor;
     const flow = flowFor(input, work, Number.isFinite(flowBefore) ? flowBefore : 0);
-    const drop = worstDrop(input, beds, flow);
+    const drop = limits.pressure_drop_max_Pa === null ? 0 : greatestDrop(input.stores, beds, flow);
     // Each margin is positive while its rule holds.
     const margins = [
       limits.hot_outlet_min_K === null || hotIndex < 0
@@ -171,15 +175,17 @@ export function rollOut(
     input.stores.forEach((store, i) => {
       const inlet =
         store.store.kind === 'hot' ? point.inlets.hot_K : (point.inlets.cold_K as number);
-      const out = stepStoreBeds(
-        input,
+      const out = stepStore(
         store,
         beds[i] as Float64Array[],
-        used,
-        inlet,
-        step_s,
-        works[i] ?? [],
         steels[i] ?? [],
+        {
+          flux: -used / store.store.bed.area_m2,
+          inlet_K: inlet,
+          ambient_K: input.ambient_K,
+          dt_s: step_s,
+        },
+        works[i] ?? [],
       );
       delivered[i] = out;
       lags[i] = excessLag(store, plenum[i] as number, out, used, step_s);
@@ -215,89 +221,4 @@ function flowFor(input: RolloutInput, work_J_kg: number, guess_kg_s: number): nu
   let flow = guess_kg_s > 0 ? guess_kg_s : plain;
   for (let i = 0; i < 4; i++) flow = plain / input.partLoad(flow);
   return flow;
-}
-
-/** Steps all tubes of a store; returns the mixed outlet [K]. */
-function stepStoreBeds(
-  input: RolloutInput,
-  store: RolloutStore,
-  beds: readonly Float64Array[],
-  flow_kg_s: number,
-  inlet_K: number,
-  step_s: number,
-  works: readonly BedWork[],
-  steels: readonly (Float64Array | null)[],
-): number {
-  let heat = 0;
-  let mass = 0;
-  store.tubes.forEach((tube, k) => {
-    const flux = (flow_kg_s * tube.flowFactor) / store.store.bed.area_m2;
-    const work = works[k] as BedWork;
-    const step = {
-      massFlux_kg_m2s: -flux,
-      inlet_K,
-      ambient_K: input.ambient_K,
-      dt_s: step_s,
-      heatTransferFactor: tube.heatTransferFactor,
-      wallLoss_W_m3K: tube.wallLoss_W_m3K,
-    };
-    const substeps = planSubsteps(store.tables, work.cells, step);
-    const part = { ...step, dt_s: step.dt_s / substeps };
-    let out = 0;
-    for (let n = 0; n < substeps; n++) {
-      bedSubstep(store.tables, beds[k] as Float64Array, part, work);
-      out += work.outlet_K;
-    }
-    const steel = steels[k] ?? null;
-    if (tube.wall !== undefined && steel !== null) {
-      const { model } = tube.wall;
-      const beside = beds[model.tube] as Float64Array;
-      // The layers are the last streams, and this is the last of them.
-      const layers = beds.slice(k + 1 - model.layers.length, k + 1);
-      const before = model.ring.length > 1 ? beside.slice() : null;
-      exchangeAtWall(model, store.tables, layers, steel, beside, step);
-      if (before !== null) {
-        shareAround(
-          model,
-          beds.map((enthalpy) => ({ enthalpy })),
-          before,
-        );
-      }
-    }
-    const weight = tube.area_share * flux;
-    heat += weight * (out / substeps);
-    mass += weight;
-  });
-  return heat / mass;
-}
-
-/** Area-mean temperature of the bed's end where the gas leaves when discharging [K]. */
-function mixedEnd(store: RolloutStore, beds: readonly Float64Array[]): number {
-  let sum = 0;
-  store.tubes.forEach((tube, k) => {
-    sum += tube.area_share * temperatureAt(store.tables, beds[k]?.[0] as number);
-  });
-  return sum;
-}
-
-function worstDrop(
-  input: RolloutInput,
-  beds: readonly (readonly Float64Array[])[],
-  flow_kg_s: number,
-): number {
-  if (input.unit.limits.pressure_drop_max_Pa === null || !Number.isFinite(flow_kg_s)) return 0;
-  let worst = 0;
-  input.stores.forEach((store, i) => {
-    const bed = beds[i]?.[0] as Float64Array;
-    const profile = new Float64Array(16);
-    for (let n = 0; n < 16; n++) {
-      const cell = Math.floor(((n + 0.5) / 16) * bed.length);
-      profile[n] = temperatureAt(store.tables, bed[cell] as number);
-    }
-    worst = Math.max(
-      worst,
-      pressureDrop(store.store.bed, flow_kg_s / store.store.bed.area_m2, profile),
-    );
-  });
-  return worst;
 }

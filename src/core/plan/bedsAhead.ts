@@ -1,11 +1,9 @@
-import { type BedWork, bedSubstep, createBedWork, planSubsteps } from '../bed/kernel.js';
-import { pressureDrop } from '../bed/pressureDrop.js';
-import { temperatureAt } from '../bed/tables.js';
+import { type BedWork, createBedWork } from '../bed/kernel.js';
 import type { Direction, StoreEnd, UnitDefinition } from '../definitions.js';
 import { throughPlenum } from '../dispatch/plenum.js';
 import type { RolloutStore } from '../dispatch/rollout.js';
+import { endOfBed, greatestDrop, stepStore } from '../dispatch/stepStore.js';
 import type { Machine, StoreTemperatures } from '../machine/machine.js';
-import { exchangeAtWall, shareAround } from '../track/wallZone.js';
 
 /** What never changes while beds are marched ahead. */
 export interface AheadModel {
@@ -71,21 +69,6 @@ export function copyAhead(from: BedsAhead): BedsAhead {
     ends_K: from.ends_K.map((ends) => ({ ...ends })),
     left_K: [...from.left_K],
   };
-}
-
-/** Area-mean temperature of a bed's end [K]. */
-export function endOfBed(
-  store: RolloutStore,
-  beds: readonly Float64Array[],
-  end: StoreEnd,
-): number {
-  let sum = 0;
-  store.tubes.forEach((tube, k) => {
-    const bed = beds[k] as Float64Array;
-    const cell = bed[end === 'charge_inlet' ? 0 : bed.length - 1] as number;
-    sum += tube.area_share * temperatureAt(store.tables, cell);
-  });
-  return sum;
 }
 
 /** Gas temperatures that the machine is given at the stores' outlets [K]. */
@@ -154,11 +137,15 @@ export function stepAhead(
     const ends = ahead.ends_K[i] as Record<StoreEnd, number>;
     const inlet_K = store.store.kind === 'hot' ? inlets.hot_K : (inlets.cold_K as number);
     const left = stepStore(
-      model,
       store,
       beds,
       ahead.steels[i] as (Float64Array | null)[],
-      { flux: (sign * flow_kg_s) / store.store.bed.area_m2, inlet_K, dt_s },
+      {
+        flux: (sign * flow_kg_s) / store.store.bed.area_m2,
+        inlet_K,
+        ambient_K: model.ambient_K,
+        dt_s,
+      },
       works[i] as BedWork[],
     );
     if (flow_kg_s > 0) {
@@ -179,75 +166,8 @@ export function stepAhead(
   });
 }
 
-interface StoreStep {
-  /** Metered mass flux, + = charge [kg/m2s]. */
-  readonly flux: number;
-  readonly inlet_K: number;
-  readonly dt_s: number;
-}
-
-/** Steps all streams of a store; returns the mixed outlet [K], NaN while standing. */
-function stepStore(
-  model: AheadModel,
-  store: RolloutStore,
-  beds: readonly Float64Array[],
-  steels: readonly (Float64Array | null)[],
-  { flux, inlet_K, dt_s }: StoreStep,
-  works: readonly BedWork[],
-): number {
-  let heat = 0;
-  let mass = 0;
-  store.tubes.forEach((tube, k) => {
-    const own = flux * tube.flowFactor;
-    const work = works[k] as BedWork;
-    const step = {
-      massFlux_kg_m2s: own,
-      inlet_K,
-      ambient_K: model.ambient_K,
-      dt_s,
-      heatTransferFactor: tube.heatTransferFactor,
-      wallLoss_W_m3K: tube.wallLoss_W_m3K,
-    };
-    const substeps = planSubsteps(store.tables, work.cells, step);
-    const part = { ...step, dt_s: dt_s / substeps };
-    let out = 0;
-    for (let n = 0; n < substeps; n++) {
-      bedSubstep(store.tables, beds[k] as Float64Array, part, work);
-      out += work.outlet_K;
-    }
-    const steel = steels[k] ?? null;
-    if (tube.wall !== undefined && steel !== null) {
-      const wall = tube.wall.model;
-      const beside = beds[wall.tube] as Float64Array;
-      // The layers are the last streams, and this is the last of them.
-      const layers = beds.slice(k + 1 - wall.layers.length, k + 1);
-      const before = wall.ring.length > 1 ? beside.slice() : null;
-      exchangeAtWall(wall, store.tables, layers, steel, beside, step);
-      if (before !== null) {
-        const all = beds.map((enthalpy) => ({ enthalpy }));
-        shareAround(wall, all, before);
-      }
-    }
-    const weight = tube.area_share * Math.abs(own);
-    heat += weight * (out / substeps);
-    mass += weight;
-  });
-  return mass > 0 ? heat / mass : Number.NaN;
-}
-
 /** The greater pressure drop of the stores at a flow [Pa]; 0 where no limit is set. */
 export function worstDrop(model: AheadModel, ahead: BedsAhead, flow_kg_s: number): number {
-  if (model.unit.limits.pressure_drop_max_Pa === null || !Number.isFinite(flow_kg_s)) return 0;
-  let worst = 0;
-  model.stores.forEach((store, i) => {
-    const bed = ahead.beds[i]?.[0] as Float64Array;
-    const profile = new Float64Array(16);
-    for (let n = 0; n < 16; n++) {
-      const cell = Math.floor(((n + 0.5) / 16) * bed.length);
-      profile[n] = temperatureAt(store.tables, bed[cell] as number);
-    }
-    const drop = pressureDrop(store.store.bed, flow_kg_s / store.store.bed.area_m2, profile);
-    worst = Math.max(worst, drop);
-  });
-  return worst;
+  if (model.unit.limits.pressure_drop_max_Pa === null) return 0;
+  return greatestDrop(model.stores, ahead.beds, flow_kg_s);
 }

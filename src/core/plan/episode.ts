@@ -2,12 +2,12 @@ import type { BedWork } from '../bed/kernel.js';
 import type { Direction } from '../definitions.js';
 import { excessLag, isSwept } from '../dispatch/plenum.js';
 import { RULES, SWEEP_MOST_S } from '../dispatch/rollout.js';
+import { endOfBed } from '../dispatch/stepStore.js';
 import type { EndCause } from '../estimate.js';
 import {
   type AheadModel,
   type BedsAhead,
   copyAhead,
-  endOfBed,
   flowFor,
   OUTLET,
   outletsOf,

@@ -1,12 +1,12 @@
 import type { Direction } from '../definitions.js';
 import { SWEEP_MOST_S } from '../dispatch/rollout.js';
+import { endOfBed } from '../dispatch/stepStore.js';
 import type { EndCause } from '../estimate.js';
 import type { StoreTemperatures } from '../machine/machine.js';
 import {
   type AheadModel,
   type BedsAhead,
   copyAhead,
-  endOfBed,
   OUTLET,
   outletsOf,
   stepAhead,
