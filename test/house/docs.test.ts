@@ -51,7 +51,10 @@ function keysOf(schema: unknown): string[] {
 
 describe('README.md names everything that a user meets', () => {
   it('each command, with an example and with every option of its own', () => {
-    const commands = found('src/commands', /(?:\.command\(|aheadCommand\(\s*program,\s*)'([a-z]+)'/g);
+    const commands = found(
+      'src/commands',
+      /(?:\.command\(|aheadCommand\(\s*program,\s*)'([a-z]+)'/g,
+    );
     const registered = [...code('src/main.ts').matchAll(/register as register\w+/g)];
     expect(commands.length).toBeGreaterThan(7);
     expect(commands).toHaveLength(registered.length);
