@@ -1,3 +1,5 @@
+import type { IndicatorsDefinition } from './watch/indicator.js';
+
 /**
  * What the core knows of a plant: plain values, SI units and kelvin, made once from the
  * configuration and frozen. Positions x run from the charge inlet (x = 0) along the flow.
@@ -296,6 +298,8 @@ export interface WatchDefinition {
   readonly data_age_s: IndicatorLimit;
   readonly sensor_rejected: Pick<IndicatorLimit, 'on_delay_s' | 'off_delay_s'>;
   readonly database_down: Pick<IndicatorLimit, 'on_delay_s' | 'off_delay_s'>;
+  /** Absent: as shipped, see core/watch/rules. */
+  readonly indicators?: IndicatorsDefinition;
 }
 
 export interface UnitDefinition {

@@ -14,6 +14,7 @@ import { describe } from './unitDescribe.js';
 import { unitModel } from './unitModel.js';
 import type { UnitState } from './unitState.js';
 import { FORGET_MS, forget, takeIn } from './unitTakeIn.js';
+import type { WatchView } from './watch/causes.js';
 import type { WatchEvent } from './watch/event.js';
 import { startWatch } from './watch/watch.js';
 
@@ -27,6 +28,8 @@ export interface UnitStep {
   readonly events: readonly WatchEvent[];
   /** What of the scan was used and what not. */
   readonly counts?: ScanCounts;
+  /** What the indicators show, and what is probably behind it. */
+  readonly watch?: WatchView;
 }
 
 export interface UnitAsk {

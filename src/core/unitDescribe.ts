@@ -10,6 +10,8 @@ import type { UnitAsk, UnitStep } from './unit.js';
 import type { UnitModel } from './unitModel.js';
 import type { UnitState } from './unitState.js';
 import type { Taken, TakenStore } from './unitTakeIn.js';
+import { causesOf } from './watch/causes.js';
+import { stepIndicators } from './watch/indicators.js';
 import { type Spread, stepWatch } from './watch/watch.js';
 
 /** The estimate of a scan just taken in, the hours asked for, and what the watch raises. */
@@ -65,6 +67,14 @@ export function describe(model: UnitModel, state: UnitState, taken: Taken, ask: 
         ),
       }
     : null;
+  // A state saved before there were indicators has none.
+  state.watch.indicators ??= {};
+  const indicators = stepIndicators(state.watch.indicators, {
+    ...{ unit, model, state, taken, estimate, spread },
+    time_ms: scan.time_ms,
+    dt_s: taken.dt_s,
+  });
+  const causes = causesOf(indicators);
   const events = stepWatch(unit, state.watch, {
     time_ms: scan.time_ms,
     mode: taken.conditions.mode,
@@ -72,8 +82,11 @@ export function describe(model: UnitModel, state: UnitState, taken: Taken, ask: 
     spread,
     readingsSeen: taken.readings,
     gas,
+    indicators,
+    causes,
   });
-  return { estimate, profile, events, counts: countsOf(model, state, taken) };
+  const watch = { time, unit: unit.id, indicators, causes };
+  return { estimate, profile, events, counts: countsOf(model, state, taken), watch };
 }
 
 function countsOf(model: UnitModel, state: UnitState, taken: Taken): ScanCounts {

@@ -22,6 +22,8 @@ export interface Taken {
   readonly scan: Scan;
   readonly implausible: readonly number[];
   readonly conditions: Conditions;
+  /** Time since the last scan [s]; 0 at the first. */
+  readonly dt_s: number;
   readonly stores: readonly TakenStore[];
   /** Thermocouple readings, and readings of any channel, in this scan. */
   readonly thermocouples: number;
@@ -139,5 +141,15 @@ export function takeIn(model: UnitModel, state: UnitState, raw: Scan): Taken {
   });
   state.time_ms = scan.time_ms;
   const readings = scan.values.reduce((n, v) => n + (Number.isFinite(v) ? 1 : 0), 0);
-  return { scan, implausible, conditions, stores, thermocouples, readings, modeChanged, disagrees };
+  return {
+    scan,
+    implausible,
+    conditions,
+    dt_s,
+    stores,
+    thermocouples,
+    readings,
+    modeChanged,
+    disagrees,
+  };
 }

@@ -7,6 +7,17 @@ export const EVENT_KINDS = [
   'front_view_disagrees',
   'gas_temperature_off',
   'database_unreachable',
+  'heat_transfer_low',
+  'string_flow_uneven',
+  'front_travel_off',
+  'standing_loss_high',
+  'valve_leaks',
+  'pressure_drop_high',
+  'plateau_off',
+  'gas_lost',
+  'bed_settled',
+  'stores_mismatched',
+  'energy_lost',
 ] as const;
 export type EventKind = (typeof EVENT_KINDS)[number];
 

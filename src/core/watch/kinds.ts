@@ -1,4 +1,5 @@
 import type { EventKind, WatchEvent } from './event.js';
+import type { IndicatorKind } from './indicator.js';
 
 /**
  * Alarm or alert, and how urgent. After ISA-18.2 an alarm needs the operator to act in time. That is
@@ -20,6 +21,32 @@ export const KIND_CLASSES: Readonly<
   gas_temperature_off: { class: 'alert', priority: 'medium' },
   front_view_disagrees: { class: 'alert', priority: 'low' },
   sensor_rejected: { class: 'alert', priority: 'low' },
+  heat_transfer_low: { class: 'alert', priority: 'medium' },
+  string_flow_uneven: { class: 'alert', priority: 'medium' },
+  front_travel_off: { class: 'alert', priority: 'medium' },
+  standing_loss_high: { class: 'alert', priority: 'medium' },
+  valve_leaks: { class: 'alert', priority: 'medium' },
+  pressure_drop_high: { class: 'alert', priority: 'medium' },
+  plateau_off: { class: 'alert', priority: 'medium' },
+  gas_lost: { class: 'alert', priority: 'medium' },
+  bed_settled: { class: 'alert', priority: 'medium' },
+  stores_mismatched: { class: 'alert', priority: 'low' },
+  energy_lost: { class: 'alert', priority: 'medium' },
+};
+
+/** Event that a degraded indicator raises; the others are watched on their own. */
+export const INDICATOR_EVENTS: Readonly<Partial<Record<IndicatorKind, EventKind>>> = {
+  heat_transfer: 'heat_transfer_low',
+  string_flow: 'string_flow_uneven',
+  front_travel: 'front_travel_off',
+  standing_loss: 'standing_loss_high',
+  valve_leak: 'valve_leaks',
+  pressure_drop: 'pressure_drop_high',
+  plateau: 'plateau_off',
+  gas_inventory: 'gas_lost',
+  settling: 'bed_settled',
+  store_mismatch: 'stores_mismatched',
+  energy_lost: 'energy_lost',
 };
 
 export interface EventParts {

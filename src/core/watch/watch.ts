@@ -1,6 +1,7 @@
 import type { Mode, StoreDefinition, UnitDefinition } from '../definitions.js';
 import type { Estimate, StoreEstimate } from '../estimate.js';
 import type { GasDoubt } from '../track/gasDoubts.js';
+import type { CauseView } from './causes.js';
 import {
   type ConditionState,
   type ConditionTiming,
@@ -11,7 +12,9 @@ import {
   stepEvidence,
 } from './condition.js';
 import type { EventKind, WatchEvent } from './event.js';
-import { watchEvent } from './kinds.js';
+import type { IndicatorView } from './indicator.js';
+import type { IndicatorStates } from './indicators.js';
+import { INDICATOR_EVENTS, watchEvent } from './kinds.js';
 import * as say from './messages.js';
 import type { SpreadRatio } from './spreadRatio.js';
 
@@ -29,6 +32,9 @@ export interface WatchInput {
   readonly readingsSeen: number;
   /** What is known of the gas-temperature channels; absent: nothing. */
   readonly gas?: readonly GasDoubt[];
+  /** What the indicators show, and what is probably behind it; absent: nothing. */
+  readonly indicators?: readonly IndicatorView[];
+  readonly causes?: readonly CauseView[];
 }
 
 /** Plain and bounded: at most one entry per kind and subject of the unit. */
@@ -36,6 +42,8 @@ export interface WatchState {
   conditions: Record<string, ConditionState>;
   /** Source time of the last scan with a reading; of the first scan before there was one [ms]. */
   lastReading_ms: number | null;
+  /** Absent in a state saved before there were any. */
+  indicators?: IndicatorStates;
 }
 
 /** Front view and tubes disagree beyond this many sigmas of their difference... */
@@ -50,7 +58,7 @@ const MANY_LEAST = 4;
 const GAP_SCANS = 5;
 
 export function startWatch(): WatchState {
-  return { conditions: {}, lastReading_ms: null };
+  return { conditions: {}, lastReading_ms: null, indicators: {} };
 }
 
 /**
@@ -91,6 +99,7 @@ export function stepWatch(
     watchViews(store, estimate, step);
   }
   watchGas(input, step);
+  watchIndicators(input, step);
   return events;
 }
 
@@ -207,6 +216,20 @@ function watchGas({ gas = [] }: WatchInput, step: Step): void {
     const evidence = one.doubtful ? 'active' : 'clear';
     step('gas_temperature_off', one.channel, evidence, AT_ONCE, one.off_K, one.limit_K, (raised) =>
       raised ? say.gasRaised(one) : say.gasReturned(one),
+    );
+  }
+}
+
+/** What has been decided is active or clear; what is not known neither raises nor returns. */
+function watchIndicators({ indicators = [], causes = [] }: WatchInput, step: Step): void {
+  for (const view of indicators) {
+    const kind = INDICATOR_EVENTS[view.kind];
+    if (kind === undefined) continue;
+    const { subject, state, value, limit } = view;
+    const evidence =
+      state === 'degraded' ? 'active' : state === 'normal' ? 'clear' : ('unknown' as const);
+    step(kind, subject, evidence, view, value, limit, (raised) =>
+      raised ? say.indicatorRaised(view, causes) : say.indicatorReturned(view),
     );
   }
 }
