@@ -82,6 +82,8 @@ export interface IndicatorView {
   readonly time: string | null;
   /** Plain sentence: what is the case, against what, and what it means. */
   readonly sentence: string;
+  /** Of `pressure_drop`: too high only while the bed is below freezing; null or absent: not known. */
+  readonly only_while_cold?: boolean | null;
 }
 
 /** What an indicator can see of one scan, after it was taken in and estimated. */

@@ -1,23 +1,9 @@
 import type { StoreKind } from '../definitions.js';
 import type { RejectedSensor, SensorVerdict } from '../estimate.js';
 import type { GasDoubt } from '../track/gasDoubts.js';
-import type { CauseKind, CauseView } from './causes.js';
+import type { CauseView } from './causes.js';
+import { CAUSES } from './causeTable.js';
 import type { IndicatorView } from './indicator.js';
-
-/** What may be behind it, as a person says it. */
-export const CAUSE_WORDS: Readonly<Record<CauseKind, string>> = {
-  dust_or_fines: 'dust or fines in the bed',
-  frost: 'frost in the bed',
-  channelling: 'gas that finds a channel through the bed',
-  flow_meter: 'the flow meter',
-  insulation: 'the insulation of the vessel',
-  valve: 'a valve that leaks while the unit stands',
-  settled_bed: 'a bed that has settled',
-  machine: 'the machine or its coolers',
-  gas_loss: 'gas that is lost from the loop',
-  thermocouples: 'thermocouples, not the bed',
-  store_mismatch: 'stores that have drifted apart over cycles',
-};
 
 /** Sentences for a tired person: what is the case, by how much, what it means, what to look at. */
 
@@ -177,13 +163,13 @@ export function databaseReturned(service: string): string {
   return `${service} answers again; what was kept is being sent on.`;
 }
 
-/** With the most probable explanation of the same store or unit, where there is one. */
+/** With the most probable explanation that speaks of its store or of the unit, where there is one. */
 export function indicatorRaised(view: IndicatorView, causes: readonly CauseView[]): string {
   const store = view.subject.split('/')[0];
-  const cause = causes.find(({ subject }) => subject === store) ?? causes[0];
+  const cause = causes.find((one) => one.subject === store || CAUSES[one.cause].of === 'unit');
   if (cause === undefined) return view.sentence;
   const sure = `${Math.round(100 * cause.probability)} %`;
-  return `${view.sentence} Probably ${CAUSE_WORDS[cause.cause]} (${sure}). On site: ${cause.check}`;
+  return `${view.sentence} Probably ${CAUSES[cause.cause].words} (${sure}). On site: ${cause.check}.`;
 }
 
 export function indicatorReturned(view: IndicatorView): string {
