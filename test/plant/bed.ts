@@ -38,6 +38,8 @@ export class Bed {
   /** Scratch of the march: pivots and right-hand sides of the shells. */
   readonly scratch: Float64Array;
   heatTransferFactor = 1;
+  /** On the loss coefficients of mantle and ends. */
+  lossFactor = 1;
   /** Heat brought in by the gas and lost to ambient since the start [J]. */
   gasHeat_J = 0;
   lostHeat_J = 0;
@@ -64,6 +66,7 @@ export class Bed {
     if (from) {
       for (const key of STATE) this[key].set(from[key]);
       this.heatTransferFactor = from.heatTransferFactor;
+      this.lossFactor = from.lossFactor;
       this.gasHeat_J = from.gasHeat_J;
       this.lostHeat_J = from.lostHeat_J;
     }

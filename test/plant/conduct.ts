@@ -44,11 +44,12 @@ export function conductPart(bed: Bed, dt: number, stirred: number, ambient_K: nu
   const radius = p.diameter_m / 2;
   const toWall = radius - c.ringMiddle_m[R - 1]!;
   const perVolume = (2 * Math.PI * radius) / c.ringArea_m2[R - 1]!;
+  const wallLoss = p.wall_loss_W_m2K * bed.lossFactor;
   let lost = 0;
   for (let i = 0, k = (R - 1) * N; i < N; i++, k++) {
     const k_W_mK = kBed[((mean[k]! - 70) * 2 + 0.5) | 0]! + lateralStir;
     const q = (dt * (wall[i]! - mean[k]!)) / (1 / WALL_EXCHANGE_W_M2K + toWall / k_W_mK);
-    const out = dt * p.wall_loss_W_m2K * (wall[i]! - ambient_K);
+    const out = dt * wallLoss * (wall[i]! - ambient_K);
     heat[k] = heat[k]! + perVolume * q;
     wall[i] = wall[i]! - (q + out) / p.wall_capacity_J_m2K;
     lost += out;
@@ -56,7 +57,7 @@ export function conductPart(bed: Bed, dt: number, stirred: number, ambient_K: nu
   bed.lostHeat_J += lost * 2 * Math.PI * radius * dx;
   for (let e = 0; e < 2; e++) {
     const steel = p.end_capacity_J_K[e]!;
-    const loss = p.end_loss_W_m2K[e]!;
+    const loss = p.end_loss_W_m2K[e]! * bed.lossFactor;
     let given = 0;
     if (steel === 0) {
       // No steel node: the first rock loses straight to ambient.

@@ -13,8 +13,18 @@ export type SensorFault = { readonly at_s: number; readonly until_s?: number } &
   | { readonly kind: 'gap' }
 );
 
-/** What changes in the plant itself, in one store. */
-export type PlantChange = { readonly at_s: number; readonly store: string } & (
+/** What changes in the plant itself: in one store, or around it. */
+export type PlantChange = StoreChange | WeatherChange;
+
+/** The weather turns: ambient temperature moves by `offset_K` over `ramp_s`. */
+export interface WeatherChange {
+  readonly kind: 'weather';
+  readonly at_s: number;
+  readonly offset_K: number;
+  readonly ramp_s: number;
+}
+
+export type StoreChange = { readonly at_s: number; readonly store: string } & (
   | /** Heat-transfer factor goes from what it is to `factor` times its drawn value over `ramp_s`. */ {
       readonly kind: 'heat_transfer';
       readonly factor: number;
@@ -32,6 +42,15 @@ export type PlantChange = { readonly at_s: number; readonly store: string } & (
    * gas of that end. The rock that is there, and its heat, stay as they were.
    */
   | { readonly kind: 'settled'; readonly depth_m: number }
+  /** Losses of mantle and ends are multiplied: the insulation is wet or has slipped. */
+  | { readonly kind: 'insulation'; readonly factor: number }
+  /**
+   * The bed's pressure drop is multiplied: by dust; with `below_K` only while the coldest rock is
+   * colder, by frost that melts again.
+   */
+  | { readonly kind: 'pressure_drop'; readonly factor: number; readonly below_K?: number }
+  /** A share of the gas has left: pressure and density of the store are lower by it. */
+  | { readonly kind: 'gas_loss'; readonly share: number; readonly ramp_s?: number }
 );
 
 function active(fault: SensorFault, time_s: number): boolean {

@@ -117,3 +117,23 @@ export function withReadOnlyString(
     ),
   };
 }
+
+/**
+ * The same plant with one more thermocouple on every string, `depth_m` below the top of the bed. Its
+ * number is 00 where the top is the charge inlet, else one beyond the last.
+ */
+export function withTopThermocouples(geometry: PlantGeometry, depth_m: number): PlantGeometry {
+  const stores = geometry.stores.map((store) => {
+    const atInlet = topEnd(store) === 0;
+    const strings = store.strings.map((string) => {
+      const { group } = string.thermocouples[0]!;
+      const number = atInlet ? '00' : String(string.thermocouples.length + 1).padStart(2, '0');
+      const position_m = atInlet ? depth_m : store.length_m - depth_m;
+      const top = { id: `${store.id}_${string.id}_${number}`, position_m, group };
+      const { thermocouples: known } = string;
+      return { ...string, thermocouples: atInlet ? [top, ...known] : [...known, top] };
+    });
+    return { ...store, strings };
+  });
+  return { ...geometry, stores };
+}

@@ -93,7 +93,7 @@ export class Instruments {
         return T + room.draw.gasSensors[channel.id]!.offset_K + NOISE.gas_K * z;
       }
       case 'pressure':
-        return storeOf(room, channel.store).geometry.pressure_Pa * (1 + NOISE.pressure * z);
+        return storeOf(room, channel.store).pressure_Pa * (1 + NOISE.pressure * z);
       case 'pressure_drop':
         return (
           storeOf(room, channel.store).pressureDrop_Pa(room.flow_kg_s) *

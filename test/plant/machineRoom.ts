@@ -1,3 +1,4 @@
+import { applyChange, weatherOffset_K } from './changes.js';
 import { type Cycle, type CyclePoint, cycleOf, flowForPower } from './cycle.js';
 import { drawPlant, type PlantDraw } from './draws.js';
 import type { PlantChange } from './faults.js';
@@ -86,7 +87,8 @@ export class MachineRoom {
   ambient_K(): number {
     const { mean_K, swing_K } = this.draw.ambient;
     const time_s = this.start_s + this.elapsed_s;
-    return mean_K - swing_K * Math.cos((2 * Math.PI * (time_s - 4 * 3600)) / 86400);
+    const day = mean_K - swing_K * Math.cos((2 * Math.PI * (time_s - 4 * 3600)) / 86400);
+    return day + weatherOffset_K(this.options.changes ?? [], this.elapsed_s);
   }
 
   /** One inner step under a command; `stoppedBy` tells when a limit has ended it. */
@@ -231,21 +233,18 @@ export class MachineRoom {
 
   private applyChanges(): void {
     for (const change of this.options.changes ?? []) {
-      if (this.elapsed_s < change.at_s) continue;
+      if (change.kind === 'weather' || this.elapsed_s < change.at_s) continue;
       const store = this.stores.find((s) => s.geometry.id === change.store);
       if (!store) throw new RangeError(`store ${change.store} of a change is not in the plant`);
-      const from = this.begun.get(change) ?? store.bed.heatTransferFactor;
-      if (change.kind === 'channelling') {
-        if (!this.begun.has(change)) store.channel(change.string, change.factor);
-      } else if (change.kind === 'settled') {
-        store.thermocouples.uncovered_m = change.depth_m;
-      } else if (change.kind === 'heat_transfer') {
-        const to = change.factor * this.draw.stores[change.store]!.heat_transfer_factor;
-        const ramp = Math.max(change.ramp_s ?? 0, 1e-9);
-        const share = Math.min(1, (this.elapsed_s - change.at_s) / ramp);
-        store.bed.heatTransferFactor = from * (to / from) ** share;
-      }
-      this.begun.set(change, from);
+      const from = this.begun.get(change);
+      const begun = from ?? store.bed.heatTransferFactor;
+      applyChange(store, change, {
+        first: from === undefined,
+        from: begun,
+        drawn: this.draw.stores[change.store]!.heat_transfer_factor,
+        since_s: this.elapsed_s - change.at_s,
+      });
+      this.begun.set(change, begun);
     }
   }
 }

@@ -59,6 +59,11 @@ export class SimulatedStore {
   inlet_K: number | null = null;
   outlet_K: number | null = null;
   leak_kg_s = 0;
+  /** On the bed's pressure drop while its coldest rock is below `dropBelow_K`. */
+  dropFactor = 1;
+  dropBelow_K = Number.POSITIVE_INFINITY;
+  /** Pressure and density of the gas over what they are by the geometry. */
+  gasShare = 1;
   private baseRingFlow: readonly number[];
   readonly layout: RingLayout;
 
@@ -75,6 +80,9 @@ export class SimulatedStore {
       this.inlet_K = from.inlet_K;
       this.outlet_K = from.outlet_K;
       this.leak_kg_s = from.leak_kg_s;
+      this.dropFactor = from.dropFactor;
+      this.dropBelow_K = from.dropBelow_K;
+      this.gasShare = from.gasShare;
       this.baseRingFlow = from.baseRingFlow;
       this.layout = from.layout;
       return;
@@ -185,6 +193,10 @@ export class SimulatedStore {
     this.bed.ringFlow.set(channelled(this.baseRingFlow, this.layout, s, factor));
   }
 
+  get pressure_Pa(): number {
+    return this.geometry.pressure_Pa * this.gasShare;
+  }
+
   pressureDrop_Pa(flow_kg_s: number): number {
     const { p } = this.bed;
     const area = (Math.PI / 4) * p.diameter_m ** 2;
@@ -193,13 +205,14 @@ export class SimulatedStore {
     for (const T of profile) {
       sum += pressureGradient(
         flow_kg_s / area,
-        p.fluid.density(T),
+        p.fluid.density(T) * this.gasShare,
         p.fluid.viscosity(T),
         p.particle_diameter_m,
         p.void_fraction,
       );
     }
-    return sum * this.bed.c.cellLength_m;
+    const factor = this.bed.mean.some((T) => T < this.dropBelow_K) ? this.dropFactor : 1;
+    return sum * this.bed.c.cellLength_m * factor;
   }
 
   /** Area-mean temperature of the rock over x, cell centres [K]. */
