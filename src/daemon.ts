@@ -24,6 +24,7 @@ import { HoursOnChange } from './daemon/hoursOnChange.js';
 import { Housekeeping } from './daemon/housekeeping.js';
 import { MqttPart } from './daemon/mqttPart.js';
 import { Notices } from './daemon/notices.js';
+import { NotifyPart } from './daemon/notifyPart.js';
 import { Pipeline } from './daemon/pipeline.js';
 import { DaemonService, type KeptTable } from './daemon/plantService.js';
 import { Questions } from './daemon/questions.js';
@@ -95,6 +96,7 @@ class RockhourDaemon implements Daemon {
   private readonly intake: Intake;
   private readonly mqtt: MqttPart;
   private readonly database: DatabasePart | null;
+  private readonly notify: NotifyPart;
   private readonly housekeeping: Housekeeping;
   private readonly hoursOnChange: HoursOnChange;
   private readonly headroomOnHours: HeadroomOnHours;
@@ -156,6 +158,12 @@ class RockhourDaemon implements Daemon {
           event: (event) => this.tellEvent(event),
         })
       : null;
+    this.notify = new NotifyPart({
+      ...common,
+      config: site.notify ?? { webhooks: [] },
+      site: site.name,
+      isTold: () => true,
+    });
     this.housekeeping = new Housekeeping({
       ...common,
       site,
@@ -244,6 +252,10 @@ class RockhourDaemon implements Daemon {
         () => database.stop(),
       );
     }
+    await this.begin(
+      () => this.notify.start(),
+      () => this.notify.stop(),
+    );
     this.restate();
     await this.begin(
       () => mqtt.startLink(),
@@ -346,6 +358,7 @@ class RockhourDaemon implements Daemon {
       brokerHealth(mqtt.name, mqtt.isConnected, mqtt.trouble, mqtt.refused),
       storeHealth(folder, this.intake.stuck, pipeline.backlog, pipeline.trouble),
       ...(this.database ? [this.database.health] : []),
+      ...this.notify.health,
       ...[...this.runners.values()].map((runner) =>
         unitHealth(runner, pipeline.failures.get(runner.unit.id), clock, future),
       ),

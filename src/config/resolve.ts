@@ -10,13 +10,14 @@ import {
   resolveWatch,
 } from './resolveOperation.js';
 import { resolveStore } from './resolveStore.js';
+import type { NotifyBlock } from './schema/notify.js';
 import type { SiteBlock, UnitBlock } from './schema/site.js';
 import type { Secrets } from './secrets.js';
-import type { ChannelSource, SiteConfig } from './site.js';
+import type { ChannelSource, SiteConfig, WebhookConfig } from './site.js';
 
 /** A sound site block becomes SI units and kelvin; every conversion of the file happens here. */
 export function resolveSite(site: SiteBlock, baseFolder: string, secrets: Secrets): SiteConfig {
-  const { mqtt, influx, store, http } = site;
+  const { mqtt, influx, notify, store, http } = site;
   return {
     name: site.name,
     units: site.units.map(resolveUnit),
@@ -44,6 +45,7 @@ export function resolveSite(site: SiteBlock, baseFolder: string, secrets: Secret
             password: secrets.influx,
             batch_points: influx.batch_points,
           },
+    notify: { webhooks: notify.webhooks.map((webhook) => resolveWebhook(webhook, secrets)) },
     store: { ...store, folder: resolvePath(baseFolder, store.folder) },
     http,
   };
@@ -92,4 +94,12 @@ function sourcesOf(unit: UnitBlock, inPrefix: string): ChannelSource[] {
     }),
   );
   return [...strings, ...others];
+}
+
+function resolveWebhook(
+  { id, url, send, least_priority, timeout_s, oldest_h }: NotifyBlock['webhooks'][number],
+  { webhooks }: Secrets,
+): WebhookConfig {
+  const secret = webhooks[id] ?? null;
+  return { id, url, secret, send, least_priority, timeout_s, oldest_h };
 }

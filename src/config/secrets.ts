@@ -3,10 +3,12 @@ import { resolve } from 'node:path';
 import type { Path } from './faults.js';
 import type { SiteBlock } from './schema/site.js';
 
-/** Passwords, read at a start and never written into a fault, a log or an answer. */
+/** Passwords and keys of signatures, read at a start and never written into a fault, a log or an answer. */
 export interface Secrets {
   readonly mqtt: string | null;
   readonly influx: string | null;
+  /** By id of the receiver. */
+  readonly webhooks: Readonly<Record<string, string | null>>;
 }
 
 export interface SecretFault {
@@ -15,52 +17,62 @@ export interface SecretFault {
   readonly expected: string;
 }
 
-type Login = {
-  readonly password_file?: string | undefined;
-  readonly password_env?: string | undefined;
-};
+interface Source {
+  readonly file: string | undefined;
+  readonly env: string | undefined;
+}
 
-/** Reads the passwords that the site names; whatever cannot be read is a fault. */
+/** Reads the secrets that the site names; whatever cannot be read is a fault. */
 export function readSecrets(
   site: SiteBlock,
   baseFolder: string,
   environment: Readonly<Record<string, string | undefined>>,
 ): { readonly secrets: Secrets; readonly faults: readonly SecretFault[] } {
   const faults: SecretFault[] = [];
-  const read = (section: string, login: Login | undefined): string | null => {
-    if (login?.password_env !== undefined) {
-      const value = environment[login.password_env];
+  const read = (path: Path, what: string, word: string, source: Source): string | null => {
+    const { file, env } = source;
+    if (env !== undefined) {
+      const value = environment[env];
       if (value !== undefined && value !== '') return value;
       faults.push({
-        path: [section, 'password_env'],
+        path: [...path, `${word}_env`],
         found: value === undefined ? 'a variable that is not set' : 'a variable that is empty',
-        expected: 'the name of an environment variable that holds the password',
+        expected: `the name of an environment variable that holds the ${what}`,
       });
     }
-    if (login?.password_file !== undefined) {
+    if (file !== undefined) {
       try {
-        // Editors end a file with a line break; it is not part of the password.
-        const value = readFileSync(resolve(baseFolder, login.password_file), 'utf8').replace(
-          /\r?\n$/,
-          '',
-        );
+        // Editors end a file with a line break; it is not part of the secret.
+        const value = readFileSync(resolve(baseFolder, file), 'utf8').replace(/\r?\n$/, '');
         if (value !== '') return value;
         faults.push({
-          path: [section, 'password_file'],
+          path: [...path, `${word}_file`],
           found: 'an empty file',
-          expected: 'a file that holds the password',
+          expected: `a file that holds the ${what}`,
         });
       } catch (error) {
         const code = (error as NodeJS.ErrnoException).code ?? 'unknown error';
         faults.push({
-          path: [section, 'password_file'],
+          path: [...path, `${word}_file`],
           found: `no file that can be read (${code})`,
-          expected: 'a file that holds the password, relative to the configuration',
+          expected: `a file that holds the ${what}, relative to the configuration`,
         });
       }
     }
     return null;
   };
-  const secrets = { mqtt: read('mqtt', site.mqtt), influx: read('influx', site.influx) };
+  const login = (section: 'mqtt' | 'influx'): string | null => {
+    const { password_file: file, password_env: env } = site[section] ?? {};
+    return read([section], 'password', 'password', { file, env });
+  };
+  const webhooks = site.notify.webhooks.map(({ id, secret_file: file, secret_env: env }, i) => [
+    id,
+    read(['notify', 'webhooks', i], 'secret', 'secret', { file, env }),
+  ]);
+  const secrets = {
+    mqtt: login('mqtt'),
+    influx: login('influx'),
+    webhooks: Object.fromEntries(webhooks) as Record<string, string | null>,
+  };
   return { secrets, faults };
 }

@@ -50,6 +50,22 @@ export interface HttpConfig {
   readonly path_prefix: string;
 }
 
+/** A receiver of alarms and alerts over HTTP. */
+export interface WebhookConfig {
+  readonly id: string;
+  readonly url: string;
+  /** Key of the signature; null: not signed. */
+  readonly secret: string | null;
+  readonly send: readonly ('alarm' | 'alert')[];
+  readonly least_priority: 'high' | 'medium' | 'low';
+  readonly timeout_s: number;
+  readonly oldest_h: number;
+}
+
+export interface NotifyConfig {
+  readonly webhooks: readonly WebhookConfig[];
+}
+
 /** A whole site: what the YAML file becomes once it is found sound. Frozen. */
 export interface SiteConfig {
   readonly name: string;
@@ -64,6 +80,8 @@ export interface SiteConfig {
   readonly clock_tolerance_s?: number;
   readonly mqtt: MqttConfig;
   readonly influx: InfluxConfig | null;
+  /** Absent: nobody else is told. */
+  readonly notify?: NotifyConfig;
   readonly store: StoreConfig;
   readonly http: HttpConfig;
 }

@@ -1,5 +1,6 @@
 import { FORWARDER_COUNTS } from '../adapters/history/influxForwarder.js';
 import { INTAKE_COUNTS } from '../adapters/mqtt/intake.js';
+import { WEBHOOK_COUNTS } from '../adapters/notify/webhookForwarder.js';
 import { READING_FATES } from '../core/scan/assemble.js';
 import type { ScanCounts } from '../core/scanCounts.js';
 import { IMPLAUSIBLE_KINDS } from '../core/track/plausible.js';
@@ -42,7 +43,8 @@ export type CounterName =
   | (typeof IMPLAUSIBLE_COUNTS)[number]
   | (typeof INTAKE_COUNTS)[number]
   | (typeof READING_FATES)[number]
-  | (typeof FORWARDER_COUNTS)[number];
+  | (typeof FORWARDER_COUNTS)[number]
+  | (typeof WEBHOOK_COUNTS)[number];
 
 /** All counters by name, from 0 at the start of the process. */
 export class Counters {
@@ -55,6 +57,7 @@ export class Counters {
       OWN_COUNTS,
       IMPLAUSIBLE_COUNTS,
       FORWARDER_COUNTS,
+      WEBHOOK_COUNTS,
     ]) {
       for (const name of list) this.counts.set(name, 0);
     }

@@ -82,3 +82,33 @@ describe('passwords', () => {
     expect(faults![0]!.hint).toMatch(/password_file or an environment variable with password_env/);
   });
 });
+
+describe('keys of signatures', () => {
+  const withHooks = (lines: string) => `${exampleText('hot-air')}\nnotify:\n  webhooks:\n${lines}`;
+  const hook = (id: string, more: string) =>
+    `    - id: ${id}\n      url: https://receiver.example/hook\n${more}`;
+
+  it('come from the environment or a file, or there is none', () => {
+    writeFileSync(join(folder, 'key'), `${SECRET}\n`);
+    const text = withHooks(
+      hook('a', '      secret_env: HOOK\n') + hook('b', '      secret_file: key\n') + hook('c', ''),
+    );
+    const { site } = parseSite(text, folder, { HOOK: `${SECRET}-2` });
+    expect(site?.notify?.webhooks.map(({ secret }) => secret)).toEqual([
+      `${SECRET}-2`,
+      SECRET,
+      null,
+    ]);
+  });
+
+  it('that are missing, doubled or of receivers with one name are faults', () => {
+    const both = '      secret_env: HOOK\n      secret_file: key\n';
+    const missing = parseSite(withHooks(hook('a', '      secret_env: HOOK\n')), folder, {});
+    expect(missing.faults?.map(({ path }) => path)).toEqual(['notify.webhooks[0].secret_env']);
+    const text = withHooks(hook('a', both) + hook('a', ''));
+    expect(parseSite(text, folder, { HOOK: SECRET }).faults?.map(({ path }) => path)).toEqual([
+      'notify.webhooks[0].secret_env',
+      'notify.webhooks[1].id',
+    ]);
+  });
+});

@@ -50,6 +50,7 @@ const RULES: readonly Rule[] = [
     /^prom-client$/,
   ),
   adapter('recording'),
+  adapter('notify'),
   { of: /^src\/config\//, may: [/^src\/config\//, core, /^src\/errors$/, /^zod$/, /^yaml$/, node] },
   {
     of: /^src\/plant\//,

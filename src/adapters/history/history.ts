@@ -2,6 +2,7 @@ import type { StoreConfig } from '../../config/site.js';
 import { Checkpoints } from './checkpoints.js';
 import { type Database, openDatabase, storeFailure } from './database.js';
 import { Estimates } from './estimates.js';
+import { EventQueue } from './eventQueue.js';
 import { Events } from './events.js';
 import { Offers } from './offers.js';
 import { Outbox } from './outbox.js';
@@ -22,6 +23,7 @@ export class History {
     readonly checkpoints: Checkpoints;
     readonly outbox: Outbox;
     readonly offers: Offers;
+    readonly sequence: Sequence;
   } | null = null;
 
   constructor(
@@ -41,6 +43,7 @@ export class History {
       checkpoints: new Checkpoints(database),
       outbox: new Outbox(database),
       offers: new Offers(database),
+      sequence,
     };
   }
 
@@ -63,6 +66,12 @@ export class History {
   }
   get offers(): Offers {
     return this.parts.offers;
+  }
+
+  /** Events for a receiver that keeps its own place among them. */
+  eventQueue(receiver: string): EventQueue {
+    const { database, sequence } = this.parts;
+    return new EventQueue(database, sequence, receiver);
   }
 
   /** Runs `write` in one transaction; SQLite's failures become errors of the catalogue. */

@@ -95,6 +95,25 @@ function serviceFaults(site: SiteBlock): CrossFault[] {
       });
     }
   }
+  site.notify.webhooks.forEach((webhook, i) => {
+    const path = ['notify', 'webhooks', i] as const;
+    if (webhook.secret_env !== undefined && webhook.secret_file !== undefined) {
+      faults.push({
+        ...cross([...path, 'secret_env'], undefined, 'one of secret_env and secret_file', {
+          others: [[...path, 'secret_file']],
+        }),
+        found: 'both',
+      });
+    }
+    const first = site.notify.webhooks.findIndex(({ id }) => id === webhook.id);
+    if (first < i) {
+      faults.push(
+        cross([...path, 'id'], webhook.id, 'a name that no other receiver has', {
+          others: [['notify', 'webhooks', first, 'id']],
+        }),
+      );
+    }
+  });
   const { mqtt, http, store } = site;
   if (mqtt.url === undefined && http.port !== 0 && http.port === mqtt.embedded_port) {
     faults.push(

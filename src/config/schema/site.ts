@@ -2,6 +2,7 @@ import { z } from 'zod';
 import { channelSchema } from './channels.js';
 import { id, key, positive, section } from './key.js';
 import { machineSchema } from './machine.js';
+import { notifySchema } from './notify.js';
 import { estimatorSchema, limitsSchema, watchSchema } from './operation.js';
 import { httpSchema, influxSchema, localStoreSchema, mqttSchema } from './services.js';
 import { storeSchema } from './store.js';
@@ -77,6 +78,7 @@ export const siteSchema = z.strictObject({
     influxSchema.optional(),
     'Time-series database; without this block the local store alone serves.',
   ),
+  notify: section(notifySchema.prefault({}), 'Who else is told of alarms and alerts.'),
   store: section(localStoreSchema.prefault({}), 'Local database files.'),
   http: section(httpSchema.prefault({}), 'Page and API.'),
 });

@@ -1,0 +1,200 @@
+import type { WebhookConfig } from '../../config/site.js';
+import type { WatchEvent } from '../../core/watch/event.js';
+import { reasonOf } from '../../errors.js';
+import { signedHeaders } from './signature.js';
+
+export const WEBHOOK_COUNTS = [
+  'webhook_sent',
+  'webhook_failures',
+  /** Older than `oldest_h` before it could be delivered: left out. */
+  'webhook_expired',
+  /** Refused for good by the receiver: left out, so that the rest can go on. */
+  'webhook_set_aside',
+] as const;
+export type WebhookCount = (typeof WEBHOOK_COUNTS)[number];
+
+export interface QueuedEvent {
+  readonly seq: number;
+  readonly event: WatchEvent;
+}
+
+/** Events in the order in which they were made, and how far this receiver has them; kept on disk. */
+export interface EventQueue {
+  /** Events behind the cursor, oldest first, at most `most`. */
+  read(most: number): readonly QueuedEvent[];
+  moveTo(seq: number): void;
+  readonly backlog: number;
+}
+
+export interface WebhookOptions {
+  readonly config: WebhookConfig;
+  readonly site: string;
+  readonly queue: EventQueue;
+  /** Wall clock [ms since 1970]. */
+  now(): number;
+  count(name: WebhookCount, by: number): void;
+  /** Cannot be delivered, and why: once per outage. */
+  down(reason: string): void;
+  up(): void;
+  /** An event that the receiver refuses for good, and what it answered. */
+  refused(reason: string): void;
+  /** False: not told, as for an alarm that is shelved. Default: all are. */
+  isTold?(event: WatchEvent): boolean;
+  /** First pause after a failure [ms]; it doubles up to 5 min. Default 1000. */
+  readonly retry_least_ms?: number;
+}
+
+const IDLE_MS = 1000;
+const RETRY_LEAST_MS = 1000;
+const RETRY_MOST_MS = 300_000;
+const ITEMS = 50;
+/** Says that the message itself is not accepted: sending it again would change nothing. */
+const REFUSED = new Set([400, 406, 409, 410, 413, 415, 422]);
+const RANK = { high: 0, medium: 1, low: 2 } as const;
+
+/**
+ * Posts alarms and alerts to one receiver, one by one in order, at least once, behind a cursor on
+ * disk: a receiver that is away gets all that happened meanwhile, up to `oldest_h`, and knows what it
+ * has by `webhook-id`. Any 2xx is delivered. What the receiver refuses as such is set aside; all else
+ * (no connection, no answer in time, a redirect, 401, 404, 429, 5xx) is tried again with growing pauses. It runs
+ * on its own timer: nothing else waits for it.
+ */
+export class WebhookForwarder {
+  private timer: NodeJS.Timeout | null = null;
+  private round: Promise<void> = Promise.resolve();
+  private underWay: AbortController | null = null;
+  private running = false;
+  private retry_ms: number;
+  private reason: string | null = null;
+
+  constructor(private readonly options: WebhookOptions) {
+    this.retry_ms = options.retry_least_ms ?? RETRY_LEAST_MS;
+  }
+
+  /** Why nothing can be delivered now, null while all is well. */
+  get trouble(): string | null {
+    return this.reason;
+  }
+
+  start(): void {
+    if (this.running) return;
+    this.running = true;
+    this.schedule(0);
+  }
+
+  /** Cuts a request under way short: it will be repeated. */
+  async stop(): Promise<void> {
+    this.running = false;
+    if (this.timer) clearTimeout(this.timer);
+    this.timer = null;
+    this.underWay?.abort();
+    await this.round;
+  }
+
+  private schedule(delay_ms: number): void {
+    if (!this.running) return;
+    this.timer = setTimeout(() => {
+      this.round = this.run();
+    }, delay_ms);
+  }
+
+  private async run(): Promise<void> {
+    try {
+      const more = await this.forward();
+      if (!this.running) return;
+      this.schedule(more ? 0 : IDLE_MS);
+    } catch (thrown) {
+      if (!this.running) return;
+      this.failed(reasonOf(thrown));
+      this.schedule(this.retry_ms);
+      this.retry_ms = Math.min(RETRY_MOST_MS, this.retry_ms * 2);
+    }
+  }
+
+  /** One page of the queue; true where more may wait. */
+  private async forward(): Promise<boolean> {
+    const { queue, config, count, now } = this.options;
+    const page = queue.read(ITEMS);
+    for (const { seq, event } of page) {
+      if (!this.running) return false;
+      if (this.isWanted(event)) {
+        if (now() - Date.parse(event.time) > config.oldest_h * 3_600_000)
+          count('webhook_expired', 1);
+        else await this.deliver(seq, event);
+      }
+      // Stopped meanwhile, the queue may be closed: the event is sent again after the next start.
+      if (!this.running) return false;
+      queue.moveTo(seq);
+    }
+    return page.length === ITEMS;
+  }
+
+  private isWanted(event: WatchEvent): boolean {
+    const { config, isTold } = this.options;
+    if (!config.send.includes(event.class)) return false;
+    if (RANK[event.priority] > RANK[config.least_priority]) return false;
+    return isTold?.(event) ?? true;
+  }
+
+  private async deliver(seq: number, event: WatchEvent): Promise<void> {
+    const { config, site, count, now, refused } = this.options;
+    const body = JSON.stringify({
+      type: `${event.class}.${event.transition}`,
+      timestamp: event.time,
+      data: { site, ...event },
+    });
+    const id = `rockhour_${seq}_${Date.parse(event.time)}`;
+    const answer = await this.post(body, {
+      'content-type': 'application/json; charset=utf-8',
+      ...signedHeaders(config.secret, id, now() / 1000, body),
+    });
+    if (answer >= 200 && answer < 300) {
+      count('webhook_sent', 1);
+      this.succeeded();
+    } else if (REFUSED.has(answer)) {
+      count('webhook_set_aside', 1);
+      refused(`${event.id} ${event.transition}: it answers ${answer}`);
+      this.succeeded();
+    } else throw new Error(`it answers ${answer}`);
+  }
+
+  /** @returns the status of the answer; its body is not read */
+  private async post(body: string, headers: Record<string, string>): Promise<number> {
+    const { config } = this.options;
+    const cut = new AbortController();
+    this.underWay = cut;
+    const late = setTimeout(
+      () => cut.abort(new Error(`no answer within ${config.timeout_s} s`)),
+      1000 * config.timeout_s,
+    );
+    try {
+      const answer = await fetch(config.url, {
+        ...{ method: 'POST', body, headers, signal: cut.signal },
+        // A redirect would carry what we say to where nobody configured it.
+        redirect: 'manual',
+      });
+      await answer.body?.cancel();
+      return answer.status;
+    } catch (thrown) {
+      // The client's own words are `fetch failed`; what happened is its cause.
+      throw thrown instanceof Error && thrown.cause instanceof Error ? thrown.cause : thrown;
+    } finally {
+      clearTimeout(late);
+      this.underWay = null;
+    }
+  }
+
+  private succeeded(): void {
+    this.retry_ms = this.options.retry_least_ms ?? RETRY_LEAST_MS;
+    if (this.reason === null) return;
+    this.reason = null;
+    this.options.up();
+  }
+
+  private failed(reason: string): void {
+    this.options.count('webhook_failures', 1);
+    const isNew = this.reason === null;
+    this.reason = reason;
+    if (isNew) this.options.down(reason);
+  }
+}

@@ -1,0 +1,70 @@
+import type { History } from '../adapters/history/history.js';
+import type { HealthPart } from '../adapters/http/service.js';
+import { WebhookForwarder } from '../adapters/notify/webhookForwarder.js';
+import type { NotifyConfig, WebhookConfig } from '../config/site.js';
+import type { WatchEvent } from '../core/watch/event.js';
+import type { Log } from '../log.js';
+import type { DaemonClock } from './clock.js';
+import type { Counters } from './counters.js';
+import type { Notices } from './notices.js';
+
+export interface NotifyPartOptions {
+  readonly config: NotifyConfig;
+  readonly site: string;
+  readonly history: History;
+  readonly clock: DaemonClock;
+  readonly counters: Counters;
+  readonly notices: Notices;
+  readonly log: Log;
+  /** False for what nobody is to be told of now, as an alarm that is shelved. */
+  isTold(event: WatchEvent): boolean;
+}
+
+interface Receiver {
+  readonly config: WebhookConfig;
+  readonly forwarder: WebhookForwarder;
+  backlog(): number;
+}
+
+/** The receivers of alarms and alerts over HTTP, each with its own cursor and pauses. */
+export class NotifyPart {
+  private receivers: readonly Receiver[] = [];
+
+  constructor(private readonly options: NotifyPartOptions) {}
+
+  get health(): HealthPart[] {
+    return this.receivers.map(({ config, forwarder, backlog }) => {
+      const { trouble } = forwarder;
+      const waiting = `${backlog()} events wait`;
+      const detail = trouble === null ? waiting : `${trouble}; ${waiting}, none is lost`;
+      return { name: `webhook ${config.id}`, ok: trouble === null, detail };
+    });
+  }
+
+  /** To be called with the history open. */
+  start(): void {
+    this.receivers = this.options.config.webhooks.map((config) => this.receiver(config));
+    for (const { forwarder } of this.receivers) forwarder.start();
+  }
+
+  async stop(): Promise<void> {
+    await Promise.all(this.receivers.map(({ forwarder }) => forwarder.stop()));
+    this.receivers = [];
+  }
+
+  private receiver(config: WebhookConfig): Receiver {
+    const { site, history, clock, counters, notices, log, isTold } = this.options;
+    const queue = history.eventQueue(`webhook ${config.id}`);
+    queue.start();
+    const forwarder = new WebhookForwarder({
+      ...{ config, site, queue, isTold },
+      now: () => clock.now(),
+      count: (name, by) => counters.add(name, by),
+      down: (reason) =>
+        log.warn(`webhook ${config.id}: cannot be delivered: ${reason}; events wait, none is lost`),
+      up: () => log.info(`webhook ${config.id}: delivered again`),
+      refused: (reason) => notices.warn('webhook_set_aside', `webhook ${config.id}: ${reason}`),
+    });
+    return { config, forwarder, backlog: () => queue.backlog };
+  }
+}
