@@ -15,6 +15,7 @@ import { unitModel } from './unitModel.js';
 import type { UnitState } from './unitState.js';
 import { FORGET_MS, forget, takeIn } from './unitTakeIn.js';
 import type { WatchView } from './watch/causes.js';
+import type { CycleRecord } from './watch/cycleRecord.js';
 import type { WatchEvent } from './watch/event.js';
 import { startWatch } from './watch/watch.js';
 
@@ -30,6 +31,8 @@ export interface UnitStep {
   readonly counts?: ScanCounts;
   /** What the indicators show, and what is probably behind it. */
   readonly watch?: WatchView;
+  /** A charge, stand or discharge that is now known to be over. */
+  readonly cycle?: CycleRecord;
 }
 
 export interface UnitAsk {
@@ -93,14 +96,19 @@ export function advance(
     );
   }
   const events: WatchEvent[] = [];
+  // Scans without a reading decide nothing but that all is forgotten, so that there is one at most.
+  let over: CycleRecord | undefined;
   if (state.time_ms !== null && scan.time_ms - state.time_ms > FORGET_MS) forget(model, state);
   for (const time_ms of missingTicks(unit, state.time_ms, scan.time_ms)) {
     const values = new Float64Array(unit.channels.length).fill(Number.NaN);
     const empty = { time_ms, values, held: new Uint8Array(values.length) };
-    events.push(...describe(model, state, takeIn(model, state, empty), NOTHING).events);
+    const tick = describe(model, state, takeIn(model, state, empty), NOTHING);
+    events.push(...tick.events);
+    over = tick.cycle ?? over;
   }
   const step = describe(model, state, takeIn(model, state, scan), ask);
-  return { ...step, events: [...events, ...step.events] };
+  const cycle = step.cycle ?? over;
+  return { ...step, ...(cycle ? { cycle } : {}), events: [...events, ...step.events] };
 }
 
 /** Times of the scans that are missing between two scans. */

@@ -1,3 +1,4 @@
+import type { UnitDefinition } from './definitions.js';
 import { hoursOf, stateOfCharge } from './dispatch/unitHours.js';
 import type { Estimate, ProfileView, Quality, StoreEstimate } from './estimate.js';
 import { countThermocouples, type ScanCounts } from './scanCounts.js';
@@ -11,6 +12,8 @@ import type { UnitModel } from './unitModel.js';
 import type { UnitState } from './unitState.js';
 import type { Taken, TakenStore } from './unitTakeIn.js';
 import { causesOf } from './watch/causes.js';
+import { cycleScanOf } from './watch/cycle/unitScan.js';
+import { cycleRules, startCycleLog, stepCycleLog } from './watch/cycleLog.js';
 import { stepIndicators } from './watch/indicators.js';
 import { type Spread, stepWatch } from './watch/watch.js';
 
@@ -81,12 +84,32 @@ export function describe(model: UnitModel, state: UnitState, taken: Taken, ask: 
     estimate,
     spread,
     readingsSeen: taken.readings,
+    drops_Pa: dropsOf(unit, scan.values),
     gas,
     indicators,
     causes,
   });
   const watch = { time, unit: unit.id, indicators, causes };
-  return { estimate, profile, events, counts: countsOf(model, state, taken), watch };
+  state.cycle ??= startCycleLog();
+  const cycle = stepCycleLog(
+    cycleRules(unit),
+    state.cycle,
+    cycleScanOf(model, state, taken, estimate, events),
+    indicators,
+  );
+  const counts = countsOf(model, state, taken);
+  return { estimate, profile, events, counts, watch, ...(cycle === null ? {} : { cycle }) };
+}
+
+/** Measured pressure drop by store; null where its reading is missing. */
+function dropsOf(unit: UnitDefinition, values: Float64Array): Record<string, number | null> {
+  const drops: Record<string, number | null> = {};
+  unit.channels.forEach(({ role }, i) => {
+    if (role.kind !== 'pressure_drop') return;
+    const read = values[i];
+    drops[role.store] = read === undefined || Number.isNaN(read) ? null : read;
+  });
+  return drops;
 }
 
 function countsOf(model: UnitModel, state: UnitState, taken: Taken): ScanCounts {

@@ -6,6 +6,7 @@ import type { ConditionsState } from './track/conditions.js';
 import type { GasMemories } from './track/gasDoubts.js';
 import type { StoreState } from './track/storeTracker.js';
 import type { StoreViews } from './track/storeViews.js';
+import type { CycleLogState } from './watch/cycleLog.js';
 import type { WatchState } from './watch/watch.js';
 
 /** Everything a unit remembers; owned by whoever holds it, changed only by `advance`. */
@@ -22,6 +23,8 @@ export interface UnitState {
   /** Inlet gas of each store, held against its rock. */
   readonly gas: GasMemories[];
   readonly watch: WatchState;
+  /** Runs told apart; absent in a state saved before there was a log. */
+  cycle?: CycleLogState;
   /** Source time of the last scan with any thermocouple reading. */
   seen_ms: number | null;
   mode: Mode;

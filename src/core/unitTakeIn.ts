@@ -39,6 +39,8 @@ export interface TakenStore {
   readonly energy: StoreEnergy;
   readonly fronts: { fronts: FrontEstimate[]; reason: FrontReason | null };
   readonly views: readonly FrontViewStep[];
+  /** Of the gas that entered, as measured, else as the machine gives it [K]; NaN before it moved. */
+  readonly inlet_K: number;
 }
 
 /** Without any thermocouple for this long the beds are forgotten: anything may have happened. */
@@ -123,7 +125,7 @@ export function takeIn(model: UnitModel, state: UnitState, raw: Scan): Taken {
       fronts.fronts,
       unknown,
     );
-    return { step, energy, fronts, views };
+    return { step, energy, fronts, views, inlet_K: drive?.inlet_K ?? Number.NaN };
   });
   const modeChanged = conditions.mode !== state.mode;
   learnMachine(model, state, conditions, dt_s, modeChanged, outlets);
