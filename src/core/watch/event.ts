@@ -4,6 +4,8 @@ export const EVENT_KINDS = [
   'sensor_rejected',
   'data_stale',
   'outlet_near_limit',
+  'pressure_drop_near_limit',
+  'estimate_blind',
   'front_view_disagrees',
   'gas_temperature_off',
   'database_unreachable',

@@ -2,11 +2,13 @@ import type { EventKind, WatchEvent } from './event.js';
 import type { IndicatorKind } from './indicator.js';
 
 /**
- * Alarm or alert, and how urgent. After ISA-18.2 an alarm needs the operator to act in time. That is
- * one of the conditions watched here: an outlet close to its limit ends the discharge within the
- * hour, and the operator has to prepare the change-over or lower the power. The others inform those
- * who look after bed, sensors and network; missing data is the most urgent of them, because every
- * figure grows old with it while the plant itself runs on.
+ * Alarm or alert, and how urgent. After ISA-18.2 an alarm needs the operator to act in time. Three of
+ * the conditions watched here do: an outlet close to its limit ends the discharge within the hour; a
+ * pressure drop close to its limit trips the machine at the next rise of flow; and a discharge that
+ * runs on an estimate which has lost its readings runs into its outlet limit unannounced, so that the
+ * operator has to take the control system's outlets for a guide now. The others inform those who look
+ * after bed, sensors and network; missing data is the most urgent of them. While charging or standing
+ * it costs nothing within the hour, so it is no alarm there.
  */
 export const KIND_CLASSES: Readonly<
   Record<
@@ -15,6 +17,8 @@ export const KIND_CLASSES: Readonly<
   >
 > = {
   outlet_near_limit: { class: 'alarm', priority: 'high' },
+  pressure_drop_near_limit: { class: 'alarm', priority: 'high' },
+  estimate_blind: { class: 'alarm', priority: 'medium' },
   data_stale: { class: 'alert', priority: 'high' },
   front_spread: { class: 'alert', priority: 'medium' },
   database_unreachable: { class: 'alert', priority: 'medium' },

@@ -122,6 +122,31 @@ export function outletReturned(store: string): string {
   return `Store ${store}: its outlet is away from its limit again, or the discharge has ended.`;
 }
 
+export function dropRaised(store: string, drop_Pa: number, most_Pa: number): string {
+  const share = Math.round((100 * drop_Pa) / most_Pa);
+  return (
+    `Store ${store}: its pressure drop is ${(drop_Pa / 1e3).toFixed(2)} kPa, ${share} % of the greatest ` +
+    `allowed ${(most_Pa / 1e3).toFixed(2)} kPa. More flow would lift rock or trip the machine. Lower the ` +
+    'power, and look for dust or frost in the bed.'
+  );
+}
+
+export function dropReturned(store: string): string {
+  return `Store ${store}: its pressure drop is away from its limit again, or the unit stands.`;
+}
+
+export function blindRaised(unit: string, quality: string): string {
+  return (
+    `Unit ${unit} discharges, but its estimate is ${quality}: hours and state of charge are no guide ` +
+    'now. Go by the outlet temperatures of the control system, and take what has been sold for unsure. ' +
+    'Look at the gateway and the thermocouples.'
+  );
+}
+
+export function blindReturned(unit: string): string {
+  return `Unit ${unit}: its estimate is a guide again, or the discharge has ended.`;
+}
+
 export function viewRaised(store: string, string: string, sigmas: number, limit: number): string {
   const ahead = sigmas > 0 ? 'further from' : 'nearer to';
   return (

@@ -16,6 +16,7 @@ import type { IndicatorView } from './indicator.js';
 import type { IndicatorStates } from './indicators.js';
 import { INDICATOR_EVENTS, watchEvent } from './kinds.js';
 import * as say from './messages.js';
+import { watchBlind, watchDrop } from './operatorAlarms.js';
 import type { SpreadRatio } from './spreadRatio.js';
 
 /** null where front or twin has no width now. */
@@ -30,6 +31,8 @@ export interface WatchInput {
   readonly spread: Readonly<Record<string, Spread>>;
   /** How many readings this scan brought, of any channel. */
   readonly readingsSeen: number;
+  /** Measured pressure drop by store id [Pa], null: no reading now; absent: none is measured. */
+  readonly drops_Pa?: Readonly<Record<string, number | null>>;
   /** What is known of the gas-temperature channels; absent: nothing. */
   readonly gas?: readonly GasDoubt[];
   /** What the indicators show, and what is probably behind it; absent: nothing. */
@@ -90,6 +93,8 @@ export function stepWatch(
   };
 
   watchAge(unit, state, input, step);
+  watchBlind(unit, input.mode, input.estimate.quality, step);
+  watchDrop(unit, input.mode, input.drops_Pa ?? {}, step);
   for (const store of unit.stores) {
     const estimate = input.estimate.stores[store.id];
     if (estimate === undefined) continue;
@@ -103,7 +108,7 @@ export function stepWatch(
   return events;
 }
 
-type Step = (
+export type Step = (
   kind: EventKind,
   subject: string,
   evidence: Evidence,

@@ -37,7 +37,7 @@ describe('kinds of events', () => {
   it('makes an alarm only of what the operator must act on in time', () => {
     expect(Object.keys(KIND_CLASSES).sort()).toEqual([...EVENT_KINDS].sort());
     const alarms = EVENT_KINDS.filter((kind) => KIND_CLASSES[kind].class === 'alarm');
-    expect(alarms).toEqual(['outlet_near_limit']);
+    expect(alarms).toEqual(['outlet_near_limit', 'pressure_drop_near_limit', 'estimate_blind']);
   });
 });
 
