@@ -1,5 +1,4 @@
 import type { UnitDefinition } from './definitions.js';
-import type { UnitDefinition } from './definitions.js';
 import { hoursOf, stateOfCharge } from './dispatch/unitHours.js';
 import type { Estimate, ProfileView, Quality, StoreEstimate } from './estimate.js';
 import { countThermocouples, type ScanCounts } from './scanCounts.js';
@@ -100,17 +99,6 @@ export function describe(model: UnitModel, state: UnitState, taken: Taken, ask: 
   );
   const counts = countsOf(model, state, taken);
   return { estimate, profile, events, counts, watch, ...(cycle === null ? {} : { cycle }) };
-}
-
-/** Measured pressure drop by store; null where its reading is missing. */
-function dropsOf(unit: UnitDefinition, values: Float64Array): Record<string, number | null> {
-  const drops: Record<string, number | null> = {};
-  unit.channels.forEach(({ role }, i) => {
-    if (role.kind !== 'pressure_drop') return;
-    const read = values[i];
-    drops[role.store] = read === undefined || Number.isNaN(read) ? null : read;
-  });
-  return drops;
 }
 
 /** Measured pressure drop by store; null where its reading is missing. */
