@@ -1,4 +1,5 @@
 import {
+  emptyReading,
   predictReading,
   projectReading,
   type ReadingModel,
@@ -52,14 +53,6 @@ export interface JudgeWork {
 /** Reading, without the step of its group, less its prediction [K]; NaN = missing. */
 export const innovation = (c: Candidate): number => c.value_K - c.reading.value_K;
 
-const emptyReading = (): ReadingModel => ({
-  value_K: 0,
-  cell: 0,
-  weight: 0,
-  slope_K_m: 0,
-  lag_m: 0,
-});
-
 const known = new WeakMap<StoreModel, JudgeWork>();
 
 /** Sensors at one height: within this share of the bed's length. */
@@ -80,7 +73,7 @@ export function judgeWork(model: StoreModel): JudgeWork {
       tube,
       sensor,
       value_K: Number.NaN,
-      reading: emptyReading(),
+      reading: emptyReading((model.tubes[tube] as TubeModel).layout.cells),
       v: (model.scratch[tube] as TubeScratch).projections[sensor] as Float64Array,
       sigma_K: 0,
       variance_K2: 0,
@@ -97,7 +90,7 @@ export function judgeWork(model: StoreModel): JudgeWork {
     groupOf: places.map((p) => (p.group === null ? -1 : names.indexOf(p.group))),
     first: model.tubes.map((_, k) => places.findIndex((p) => p.tube === k)),
     id: places.map((p) => p.id),
-    reading: emptyReading(),
+    reading: emptyReading(model.tubes[0]?.layout.cells ?? 0),
   };
   known.set(model, work);
   return work;

@@ -9,7 +9,7 @@ import {
 import { guessLeft } from './judgeStart.js';
 import { judgeSwaps } from './judgeSwap.js';
 import { type Candidate, innovation, type JudgeWork } from './judgeWork.js';
-import type { AcceptedReading } from './measurement.js';
+import type { AcceptedReading } from './readingUpdate.js';
 import { plausibleRange } from './storeStart.js';
 import type { StoreModel, StoreState } from './storeTracker.js';
 import type { TubeDrive, TubeModel } from './tube.js';

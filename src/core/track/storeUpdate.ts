@@ -11,7 +11,8 @@ import {
   judgeWork,
   predictTubeReadings,
 } from './judgeWork.js';
-import { applyReadings, predictReading } from './measurement.js';
+import { predictReading } from './measurement.js';
+import { applyReadings } from './readingUpdate.js';
 import { judgeAll, memoryOf } from './storeJudge.js';
 import { plausibleRange, restart } from './storeStart.js';
 import {

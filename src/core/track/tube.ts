@@ -37,10 +37,24 @@ export interface TubeState {
   readonly covariance: Float64Array;
   /** Gas-to-rock lag at the last step, signed by the flow [m]. */
   readonly gasLag_m: Float64Array;
+  /** The gas of the last step, to which `gasLag_m` belongs; absent before the first that kept it. */
+  gas?: TubeGas;
   /** Mean temperature of the gas that left in the last step [K], NaN while standing. */
   outlet_K: number;
   /** Running mean of the innovations' squares over what was expected, per reading; 1 = as expected. */
   surprise: number;
+}
+
+/** Gas that was driven through a tube in a step, and the states that it was reckoned with. */
+export interface TubeGas {
+  /** As measured or assumed, without the state of its offset [K]. */
+  readonly inlet_K: number;
+  /** Of an inlet that is assumed, 0 where it is measured [K]. */
+  readonly inletSigma_K: number;
+  /** ln flow factor and ln phi_h, and d ln l/d ln G = 1 - d ln hv/d ln G in the middle of the bed. */
+  readonly flow: number;
+  readonly transfer: number;
+  readonly flowSlope: number;
 }
 
 /** Arrays that the steps of one size share; never part of the state. */
@@ -216,6 +230,13 @@ export function predictTube(
   const sign = Math.sign(drive.massFlux_kg_m2s);
   loosenPositions(model, state, work.gasLag_m, sign);
   for (let i = 0; i < layout.cells; i++) state.gasLag_m[i] = sign * (work.gasLag_m[i] as number);
+  state.gas = {
+    inlet_K: drive.inlet_K,
+    inletSigma_K: drive.inletSigma_K,
+    flow: state.further[layout.flow - layout.cells] as number,
+    transfer: state.further[layout.transfer - layout.cells] as number,
+    flowSlope: flowing ? 1 - (work.filmSlope[layout.cells >> 1] as number) : 0,
+  };
 }
 
 /** Puts H' of the perturbed step into the column; `finishColumn` makes the difference quotient. */

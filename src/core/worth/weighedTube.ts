@@ -1,13 +1,12 @@
 import type { StringDefinition } from '../definitions.js';
 import type { TubeLayout } from '../track/layout.js';
 import {
-  type AcceptedReading,
-  applyReadings,
+  emptyReading,
   predictReading,
   projectReading,
-  type ReadingModel,
   readingVariance,
 } from '../track/measurement.js';
+import { type AcceptedReading, applyReadings } from '../track/readingUpdate.js';
 import { blankTube } from '../track/start.js';
 import {
   createTubeScratch,
@@ -142,7 +141,7 @@ export function stepWeighed(tube: WeighedTube, drive: TubeDrive, scans: number):
   const accepted: AcceptedReading[] = [];
   reads.forEach((read, sensor) => {
     if (!read) return;
-    const reading: ReadingModel = { value_K: 0, cell: 0, weight: 0, slope_K_m: 0, lag_m: 0 };
+    const reading = emptyReading(model.layout.cells);
     predictReading(model, state, sensor, reading);
     const v = scratch.projections[sensor] as Float64Array;
     projectReading(model, state, sensor, reading, v);

@@ -1,5 +1,5 @@
 import { describe, expect, it } from 'vitest';
-import { predictReading } from '../../../src/core/track/measurement.js';
+import { emptyReading, predictReading } from '../../../src/core/track/measurement.js';
 import { type StoreState, startStore, stepStore } from '../../../src/core/track/storeTracker.js';
 import { predictTube, type TubeDrive } from '../../../src/core/track/tube.js';
 import {
@@ -46,7 +46,7 @@ describe('a weighed tube', () => {
     const ahead = structuredClone(state.tubes[0]!);
     predictTube(TUBE!, ahead, DRIVE, MODEL.scratch[0]!);
     const values = Float64Array.from({ length: layout.sensors }, (_, sensor) => {
-      const reading = { value_K: 0, cell: 0, weight: 0, slope_K_m: 0, lag_m: 0 };
+      const reading = emptyReading(layout.cells);
       predictReading(TUBE!, ahead, sensor, reading);
       return reading.value_K;
     });
