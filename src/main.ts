@@ -2,6 +2,7 @@ import { Command, CommanderError } from 'commander';
 import { register as registerBalance } from './commands/balance.js';
 import { register as registerCapability } from './commands/capability.js';
 import { register as registerCheck } from './commands/check.js';
+import { register as registerCycles } from './commands/cycles.js';
 import { register as registerDemo } from './commands/demo.js';
 import { register as registerHeadroom } from './commands/headroom.js';
 import { closingHelp } from './commands/help.js';
@@ -25,6 +26,7 @@ const COMMANDS = [
   registerSchedule,
   registerCapability,
   registerBalance,
+  registerCycles,
   registerTune,
   registerSensors,
   registerCheck,

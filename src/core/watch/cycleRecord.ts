@@ -5,6 +5,8 @@ import type { IndicatorView } from './indicator.js';
 export interface WidthAtPlace {
   /** Energy-equivalent position at which it was taken [m]: 25, 50 and 75 % of the length, where passed. */
   readonly place_m: number;
+  /** The same as a share of the length. */
+  readonly share: number;
   readonly width_m: number | null;
   readonly width_sigma_m: number | null;
   readonly spread_ratio: number | null;

@@ -82,6 +82,7 @@ function storeRun(stretch: Stretch, mode: Mode, s: number): StoreRun {
         : [
             {
               place_m: (PLACES[i] as number) * end.length_m,
+              share: PLACES[i] as number,
               width_m: at.width_m,
               width_sigma_m: at.width_sigma_m,
               spread_ratio: at.spread_ratio,
