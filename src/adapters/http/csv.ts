@@ -19,7 +19,10 @@ export function standOf({ unit, time, age_s, valid_until, stale, quality }: Stan
 }
 
 /** RFC 4180: header row, CRLF, quotes where needed; null is an empty field. */
-export function toCsv(columns: readonly string[], rows: readonly HistoryPoint[]): string {
+export function toCsv(
+  columns: readonly string[],
+  rows: readonly Readonly<Record<string, number | string | null>>[],
+): string {
   const lines = [columns.map(field).join(',')];
   for (const row of rows) lines.push(columns.map((column) => field(row[column] ?? null)).join(','));
   return `${lines.join('\r\n')}\r\n`;

@@ -4,6 +4,7 @@ import { limitedAnswers } from '../../core/plan/limitedBy.js';
 import { limitsView } from '../../core/plan/limitsView.js';
 import { ZERO_CELSIUS_K } from '../../core/units.js';
 import type { UnitWorth } from '../../core/worth/unitWorth.js';
+import { HttpFault } from './faults.js';
 import type {
   StreamStateView,
   UnitDefinitionView,
@@ -12,6 +13,16 @@ import type {
 } from './schema/answers.js';
 import type { UnitWorthView } from './schema/worth.js';
 import type { UnitNow } from './service.js';
+
+/** Where a unit has nothing to show yet. */
+export function noEstimate(unit: string): HttpFault {
+  return new HttpFault(
+    503,
+    'no_estimate_yet',
+    `unit ${unit} has no estimate yet: no scan of it has been taken in since it was set up`,
+    { field: 'unit', value: unit },
+  );
+}
 
 /** From SI and kelvin to the units of the edge; the only place of this adapter that converts. */
 

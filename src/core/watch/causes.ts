@@ -24,6 +24,11 @@ export interface WatchView {
   readonly causes: readonly CauseView[];
 }
 
+/** The states of all indicators as one text: two views are alike in state where it is. */
+export function statesOf({ indicators }: WatchView): string {
+  return indicators.map(({ kind, subject, state }) => `${kind}/${subject}=${state}`).join(' ');
+}
+
 /** Chance that an indicator decides `degraded` where the cause has nothing to do with it. */
 const STRAY = 0.02;
 /** Explanations less probable than this are not told. */

@@ -16,9 +16,10 @@ const POINTS = 500;
 export function spanOf(
   query: { from?: number | undefined; to?: number | undefined },
   newest: string | undefined,
+  usual_ms = DAY_MS,
 ): { from: number; to: number } {
   const to = query.to ?? (newest === undefined ? Date.now() : Date.parse(newest));
-  const from = query.from ?? to - DAY_MS;
+  const from = query.from ?? to - usual_ms;
   if (from < to) return { from, to };
   throw wrongValue(
     'from',

@@ -13,16 +13,7 @@ import { headroomQuery } from '../schema/plan.js';
 import { sensorsQuery, unitParams } from '../schema/questions.js';
 import { unitWorthSchema } from '../schema/worth.js';
 import type { PlantService, UnitNow } from '../service.js';
-import { ageOf, definitionView, profileView, stateView, worthView } from '../views.js';
-
-function noEstimate(unit: string): HttpFault {
-  return new HttpFault(
-    503,
-    'no_estimate_yet',
-    `unit ${unit} has no estimate yet: no scan of it has been taken in since it was set up`,
-    { field: 'unit', value: unit },
-  );
-}
+import { ageOf, definitionView, noEstimate, profileView, stateView, worthView } from '../views.js';
 
 async function askHours(
   service: PlantService,

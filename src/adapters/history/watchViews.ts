@@ -1,0 +1,63 @@
+import { statesOf, type WatchView } from '../../core/watch/causes.js';
+import type { Database } from './database.js';
+
+/** Spacing of the views that are kept [ms], besides those in which an indicator changed its state. */
+const EVERY_MS = 600_000;
+
+/** What indicators showed, by unit and time: every 10 minutes of source time and at each change. */
+export class WatchViews {
+  private readonly due = new Map<string, number>();
+  private readonly states = new Map<string, string>();
+
+  constructor(private readonly database: Database) {}
+
+  /** Keeps a view where it is due, or where an indicator has another state than in the last one given. */
+  add(view: WatchView): void {
+    const time_ms = Date.parse(view.time);
+    const states = statesOf(view);
+    const changed = this.statesBefore(view.unit) !== states;
+    this.states.set(view.unit, states);
+    if (!changed && time_ms < (this.due.get(view.unit) ?? Number.NEGATIVE_INFINITY)) return;
+    this.due.set(view.unit, (Math.floor(time_ms / EVERY_MS) + 1) * EVERY_MS);
+    this.database
+      .prepare('INSERT OR IGNORE INTO watch (unit, time, json) VALUES (?, ?, ?)')
+      .run(view.unit, time_ms, JSON.stringify(view));
+  }
+
+  latest(unit: string): WatchView | null {
+    const json = this.database
+      .prepare('SELECT json FROM watch WHERE unit = ? ORDER BY time DESC LIMIT 1')
+      .pluck()
+      .get(unit) as string | undefined;
+    return json === undefined ? null : (JSON.parse(json) as WatchView);
+  }
+
+  /** The newest of a span of time; null where it has none. */
+  newestUntil(unit: string, from_ms: number, to_ms: number): WatchView | null {
+    const json = this.database
+      .prepare(
+        'SELECT json FROM watch WHERE unit = ? AND time BETWEEN ? AND ? ORDER BY time DESC LIMIT 1',
+      )
+      .pluck()
+      .get(unit, from_ms, to_ms) as string | undefined;
+    return json === undefined ? null : (JSON.parse(json) as WatchView);
+  }
+
+  /** Views of a span of time, oldest first, at most `most`. */
+  between(unit: string, from_ms: number, to_ms: number, most: number): WatchView[] {
+    const rows = this.database
+      .prepare(
+        'SELECT json FROM watch WHERE unit = ? AND time BETWEEN ? AND ? ORDER BY time LIMIT ?',
+      )
+      .pluck()
+      .all(unit, from_ms, to_ms, most) as string[];
+    return rows.map((json) => JSON.parse(json) as WatchView);
+  }
+
+  private statesBefore(unit: string): string | null {
+    const held = this.states.get(unit);
+    if (held !== undefined) return held;
+    const stored = this.latest(unit);
+    return stored && statesOf(stored);
+  }
+}
