@@ -1,0 +1,179 @@
+import { percent } from '../../core/report/findings.js';
+import type { ReportData } from '../../core/report/reportData.js';
+import { hoursOf } from '../../core/report/totals.js';
+import { ZERO_CELSIUS_K } from '../../core/units.js';
+import type { IndicatorView } from '../../core/watch/indicator.js';
+import { escapeText as text } from './escape.js';
+
+/** Rows beyond this are left out of the sheet, and said so; JSON and CSV have all. */
+const MOST_RUNS = 120;
+const MOST_EVENTS = 200;
+
+interface Column {
+  readonly head: string;
+  readonly number?: boolean;
+}
+
+function table(columns: readonly Column[], rows: readonly (readonly string[])[]): string {
+  const cell = (tag: string, i: number, content: string) =>
+    `<${tag}${columns[i]?.number ? ' class="n"' : ''}>${content}</${tag}>`;
+  const head = columns.map(({ head }, i) => cell('th', i, head)).join('');
+  const body = rows.map((row) => `<tr>${row.map((c, i) => cell('td', i, c)).join('')}</tr>`);
+  return `<div class="wide"><table><thead><tr>${head}</tr></thead><tbody>${body.join('')}</tbody></table></div>`;
+}
+
+const n = (head: string): Column => ({ head, number: true });
+const t = (head: string): Column => ({ head });
+
+export function indicatorTable({ indicators }: ReportData): string {
+  if (indicators.length === 0) return '<p class="empty">None was kept in this span.</p>';
+  const rows = indicators.map((view) => [
+    text(view.kind.replaceAll('_', ' ')),
+    text(view.subject),
+    view.state === 'degraded' ? '<span class="bad">degraded</span>' : stateWords(view),
+    withSigma(view),
+    view.healthy === null
+      ? '-'
+      : `${short(view.healthy)} <span class="soft">${view.healthy_from ?? ''}</span>`,
+    `${short(view.limit)} ${text(view.unit)}`,
+    view.score === null ? '-' : percent(view.score),
+  ]);
+  const heads = [
+    t('indicator'),
+    t('of'),
+    t('state'),
+    n('value'),
+    n('healthy'),
+    n('limit'),
+    n('decided'),
+  ];
+  return `${table(heads, rows)}<p class="soft">Decided: how far the sequential test has come; 100 % is a decision. A healthy indicator is called degraded once in years.</p>`;
+}
+
+function stateWords({ state, reason }: IndicatorView): string {
+  return reason === null
+    ? state
+    : `${state} <span class="soft">${reason.replaceAll('_', ' ')}</span>`;
+}
+
+function withSigma({ value, sigma }: IndicatorView): string {
+  if (value === null) return '-';
+  return sigma === null ? short(value) : `${short(value)} +/- ${short(sigma)}`;
+}
+
+/** Three significant digits, as a plain number. */
+function short(value: number): string {
+  if (value === 0) return '0';
+  const digits = Math.max(0, 2 - Math.floor(Math.log10(Math.abs(value))));
+  return value.toFixed(Math.min(5, digits));
+}
+
+export function sensorTable({ sensors }: ReportData): string {
+  const rows = sensors.map(({ id, store, string, position_m, group, now, verdicts }) => [
+    text(id),
+    `${text(store)} ${text(string)}`,
+    position_m.toFixed(2),
+    text(group ?? '-'),
+    now === null
+      ? 'believed'
+      : `<span class="bad">${text(now.verdict.replaceAll('_', ' '))}</span> since ${minuteOf(now.since)}`,
+    verdicts.length === 0
+      ? '-'
+      : verdicts
+          .slice(-3)
+          .map(
+            ({ from, until }) =>
+              `${minuteOf(from)} to ${until === null ? 'the end' : minuteOf(until)}`,
+          )
+          .join('<br>'),
+  ]);
+  const heads = [
+    t('thermocouple'),
+    t('where'),
+    n('x [m]'),
+    t('group'),
+    t('at the end'),
+    t('not believed'),
+  ];
+  return table(heads, rows);
+}
+
+export function cycleTable({ cycles, stores }: ReportData): string {
+  if (cycles.length === 0) return '<p class="empty">No run ended in this span.</p>';
+  const shown = cycles.slice(-MOST_RUNS);
+  const rows = shown.map((cycle) => [
+    minuteOf(cycle.from),
+    cycle.kind + (cycle.incomplete.length > 0 ? ' *' : ''),
+    hoursOf(cycle).toFixed(1),
+    number(cycle.drawn_MWh_el, 2),
+    number(cycle.delivered_MWh_el, 2),
+    ...stores.flatMap(({ id }) => {
+      const run = cycle.stores[id];
+      const width = run?.widths.find(({ width_m }) => width_m !== null);
+      return [
+        run === undefined
+          ? '-'
+          : `${(100 * run.soc_from).toFixed(0)} to ${(100 * run.soc_to).toFixed(0)}`,
+        number(run?.lost_MWh_th ?? null, 2),
+        number(width?.width_m ?? null, 2),
+      ];
+    }),
+    cycle.round_trip === null ? '-' : percent(cycle.round_trip),
+    String(cycle.raised.length || '-'),
+  ]);
+  const heads = [
+    ...[t('from'), t('run'), n('h'), n('drawn MWh_el'), n('delivered MWh_el')],
+    ...stores.flatMap(({ id }) => [
+      n(`${text(id)} charge %`),
+      n(`${text(id)} lost MWh_th`),
+      n(`${text(id)} width m`),
+    ]),
+    ...[n('round trip'), n('raised')],
+  ];
+  const left = cycles.length - shown.length;
+  const notes = [
+    ...(left > 0 ? [`${left} earlier runs are left out here; JSON and CSV have all.`] : []),
+    ...(cycles.some((c) => c.incomplete.length > 0)
+      ? ['* has a gap, an unknown flow or power, or began before the record.']
+      : []),
+    'Width: where the front first passed a quarter, the middle or three quarters of the bed.',
+  ];
+  return `${table(heads, rows)}<p class="soft">${notes.join(' ')}</p>`;
+}
+
+export function eventTable({ events, alarms }: ReportData): string {
+  const figures =
+    alarms === null
+      ? ''
+      : `<p>${alarms.annunciated} alarms annunciated, ${alarms.per_day.toFixed(1)} a day, at most ${alarms.most_in_10_min} in 10 min. ${
+          alarms.chattering.length > 0
+            ? `Chattering: ${text(alarms.chattering.join(', '))}.`
+            : 'None chattered.'
+        }</p>`;
+  if (events.length === 0) return `${figures}<p class="empty">None in this span.</p>`;
+  const shown = events.slice(-MOST_EVENTS);
+  const rows = shown.map((event) => [
+    minuteOf(event.time),
+    event.class === 'alarm' ? 'alarm' : 'alert',
+    event.transition,
+    text(event.message),
+  ]);
+  const left = events.length - shown.length;
+  return `${figures}${table([t('time'), t(''), t(''), t('what')], rows)}${
+    left > 0
+      ? `<p class="soft">${left} earlier ones are left out here; JSON and CSV have all.</p>`
+      : ''
+  }`;
+}
+
+function number(value: number | null, digits: number): string {
+  return value === null ? '-' : value.toFixed(digits);
+}
+
+function minuteOf(iso: string): string {
+  return `${iso.slice(5, 10)} ${iso.slice(11, 16)}`;
+}
+
+export function degC(kelvin: number): number {
+  return kelvin - ZERO_CELSIUS_K;
+}
