@@ -1,0 +1,275 @@
+import { pressureDrop } from '../../bed/pressureDrop.js';
+import { meanTemperatures } from '../../track/storeEstimate.js';
+import type { StoreModel, StoreState } from '../../track/storeTracker.js';
+import type { UnitModel } from '../../unitModel.js';
+import { type BaselineState, baseline, learnBaseline, startBaseline } from '../baseline.js';
+import type {
+  Indicator,
+  IndicatorInput,
+  IndicatorRule,
+  IndicatorsDefinition,
+  IndicatorView,
+} from '../indicator.js';
+import { decisionAt, stepSequential } from '../sequential.js';
+import { type Followed, shownAs, startFollowed, withSigma } from './shown.js';
+
+/** Readings are averaged over this time of even flow, and so many of these make one value [s]. */
+const BLOCK_S = 600;
+const BLOCKS = 6;
+/** Flow counts from this share of the greatest one on; below, transmitters tell little. */
+const LEAST_FLOW = 0.25;
+/** Within a block it changes by at most this share of its mean. */
+const EVEN = 0.1;
+/**
+ * One sigma of a value: the drop goes with the flow to the power 1.7, the meter's error changes by a
+ * per cent over its range, and its noise over ten minutes is of that order, too.
+ */
+const VALUE_SIGMA = 0.02;
+const RULE = { floor: 0.015, enough: 0.018, least: 6 };
+/**
+ * ln of the drop of a sound bed against the configured law, as long as nothing is learned: a void
+ * fraction off by 0.012 is 12 %, rough rock up to 1.45 times smooth (Macdonald et al. 1979).
+ */
+const PRIOR_SIGMA = 0.2;
+/** Rock below freezing by less than this is neither cold nor warm [K]. */
+const FREEZING_K = 273.15;
+const EITHER_WAY_K = 3;
+/** Sums by condition fade with this time of flow [s]. */
+const FADE_S = 12 * 3600;
+
+/** Weighted mean ratio under one condition. */
+interface Mean {
+  weight: number;
+  sum: number;
+}
+
+const noMean = (): Mean => ({ weight: 0, sum: 0 });
+
+interface Drop {
+  readonly followed: Followed;
+  readonly healthy: BaselineState;
+  /** Of the block that runs: time, scans, sums of drop, flow and pressure; least and greatest flow. */
+  block_s: number;
+  scans: number;
+  drop_Pa: number;
+  flow_kg_s: number;
+  pressure: number;
+  least_kg_s: number;
+  most_kg_s: number;
+  /** Of the value that is made up. */
+  blocks: number;
+  ratios: number;
+  /** While rock is below freezing, and while none is. */
+  cold: Mean;
+  warm: Mean;
+}
+
+export interface PressureDropState {
+  readonly stores: Drop[];
+}
+
+/**
+ * Measured pressure drop over that of Ergun's equation along the present profile at the present flow
+ * and pressure, against this bed's own healthy ratio. An hour of even flow makes one value. Sums kept
+ * apart for a bed with and without rock below freezing tell frost, which melts, from dust.
+ */
+export const PRESSURE_DROP: Indicator<PressureDropState> = {
+  kind: 'pressure_drop',
+  start: (model) => ({ stores: model.stores.map(startDrop) }),
+  step(state, rule, watching, input) {
+    return input.model.stores.map((store, s) => {
+      const drop = state.stores[s] as Drop;
+      const channel = channelOf(input.model, 'pressure_drop', store.store.id);
+      if (channel >= 0) follow(drop, store, s, channel, rule, watching, input);
+      return view(drop, store, channel, rule);
+    });
+  },
+};
+
+function startDrop(): Drop {
+  return {
+    followed: startFollowed(),
+    healthy: startBaseline(),
+    ...EMPTY_BLOCK,
+    blocks: 0,
+    ratios: 0,
+    cold: noMean(),
+    warm: noMean(),
+  };
+}
+
+const EMPTY_BLOCK = {
+  block_s: 0,
+  scans: 0,
+  drop_Pa: 0,
+  flow_kg_s: 0,
+  pressure: 0,
+  least_kg_s: Number.POSITIVE_INFINITY,
+  most_kg_s: 0,
+};
+
+/** Index of a store's channel of a kind; -1 = none. */
+export function channelOf(
+  { unit }: UnitModel,
+  kind: 'pressure' | 'pressure_drop',
+  store: string,
+): number {
+  return unit.channels.findIndex(({ role }) => role.kind === kind && role.store === store);
+}
+
+function follow(
+  drop: Drop,
+  store: StoreModel,
+  s: number,
+  channel: number,
+  rule: IndicatorRule,
+  watching: IndicatorsDefinition,
+  { model, state, taken, time_ms, dt_s }: IndicatorInput,
+): void {
+  const { conditions, scan } = taken;
+  const flow = Math.abs(conditions.flow_kg_s);
+  const read = Math.abs(scan.values[channel] as number);
+  const known = conditions.flowKnown && !conditions.flowStandIn;
+  if (flow < LEAST_FLOW * model.unit.limits.discharge.flow_max_kg_s || !known) {
+    Object.assign(drop, EMPTY_BLOCK);
+    return;
+  }
+  drop.block_s += dt_s;
+  if (Number.isFinite(read)) {
+    const at = channelOf(model, 'pressure', store.store.id);
+    const pressure = at >= 0 ? (scan.values[at] as number) : Number.NaN;
+    drop.scans++;
+    drop.drop_Pa += read;
+    drop.flow_kg_s += flow;
+    drop.pressure += Number.isFinite(pressure) ? pressure : store.store.bed.pressure_Pa;
+    drop.least_kg_s = Math.min(drop.least_kg_s, flow);
+    drop.most_kg_s = Math.max(drop.most_kg_s, flow);
+  }
+  if (drop.block_s < BLOCK_S) return;
+  const { scans, least_kg_s, most_kg_s } = drop;
+  const mean = drop.flow_kg_s / scans;
+  const measured = drop.drop_Pa / scans;
+  const pressure = drop.pressure / scans;
+  Object.assign(drop, EMPTY_BLOCK);
+  if (scans < 3 || most_kg_s - least_kg_s > EVEN * mean) return;
+  const profile = meanTemperatures(store, state.stores[s] as StoreState);
+  const { bed } = store.store;
+  // Density goes with the pressure, and the drop with its inverse.
+  const law = pressureDrop(bed, mean / bed.area_m2, profile) * (bed.pressure_Pa / pressure);
+  const ratio = measured / law;
+  if (!(ratio > 0 && ratio < 1e3)) return;
+  note(drop, ratio, profile);
+  drop.ratios += ratio;
+  drop.blocks++;
+  if (drop.blocks < BLOCKS) return;
+  take(drop, drop.ratios / drop.blocks, rule, watching, time_ms);
+  drop.blocks = 0;
+  drop.ratios = 0;
+}
+
+function note(drop: Drop, ratio: number, profile: Float64Array): void {
+  const coldest = profile.reduce((least, t) => Math.min(least, t), Number.POSITIVE_INFINITY);
+  if (Math.abs(coldest - FREEZING_K) < EITHER_WAY_K) return;
+  const mean = coldest < FREEZING_K ? drop.cold : drop.warm;
+  const keep = Math.exp(-BLOCK_S / FADE_S);
+  mean.weight = mean.weight * keep + 1;
+  mean.sum = mean.sum * keep + ratio;
+}
+
+/** Healthy ratio with its sigma: learned, but no more than a sound bed can have. */
+function healthyOf(drop: Drop): { value: number; sigma: number; learned: boolean } {
+  const learned = drop.healthy.count >= 2 ? baseline(drop.healthy, RULE) : null;
+  if (learned === null) return { value: 1, sigma: Math.exp(PRIOR_SIGMA) - 1, learned: false };
+  return {
+    value: Math.min(learned.value, Math.exp(2 * PRIOR_SIGMA)),
+    sigma: learned.sigma,
+    learned: true,
+  };
+}
+
+function take(
+  drop: Drop,
+  ratio: number,
+  rule: IndicatorRule,
+  { in_control_d, baseline_from_ms }: IndicatorsDefinition,
+  time_ms: number,
+): void {
+  const { followed } = drop;
+  const known = healthyOf(drop);
+  const value = ratio / known.value;
+  const spread = known.sigma / known.value;
+  const healthy = 1 + 2 * spread;
+  followed.decision = decisionAt(in_control_d, BLOCK_S * BLOCKS);
+  const tested = { value, sigma: VALUE_SIGMA * value, healthy, degraded: healthy * rule.limit };
+  stepSequential(followed.test, tested, followed.decision);
+  // Nothing speaks for an excess: what comes from now on may be one (Page's estimate of the change).
+  if (followed.test.up === 0) Object.assign(drop, { cold: noMean(), warm: noMean() });
+  followed.value = value;
+  followed.sigma = Math.hypot(VALUE_SIGMA, spread) * value;
+  followed.time_ms = time_ms;
+  if (followed.test.degraded || followed.test.up > 0.25 * followed.decision) return;
+  const own = { value: ratio, sigma: VALUE_SIGMA * ratio };
+  learnBaseline(drop.healthy, own, time_ms, baseline_from_ms, RULE);
+}
+
+function view(
+  drop: Drop,
+  { store }: StoreModel,
+  channel: number,
+  rule: IndicatorRule,
+): IndicatorView {
+  const { followed } = drop;
+  const known = healthyOf(drop);
+  const only = followed.test.degraded ? onlyWhileCold(drop, known.value, rule) : null;
+  const shown = shownAs({
+    kind: 'pressure_drop',
+    subject: store.id,
+    unit: '-',
+    rule,
+    followed,
+    healthy: channel < 0 ? null : 1,
+    healthy_from: known.learned ? 'learned' : 'configured',
+    reason: channel < 0 ? 'not_instrumented' : drop.healthy.kept ? null : 'learning',
+    sentence: sentence(store.id, drop, channel, known.learned, only, rule),
+  });
+  return { ...shown, only_while_cold: only };
+}
+
+/**
+ * Whether the excess is there below freezing and gone above; null where it was not seen both ways.
+ * Half of the excess parts the two.
+ */
+function onlyWhileCold({ cold, warm }: Drop, healthy: number, rule: IndicatorRule): boolean | null {
+  if (warm.weight < 1) return null;
+  const half = 1 + (rule.limit - 1) / 2;
+  if (warm.sum / warm.weight / healthy > half) return false;
+  return cold.weight >= 1 && cold.sum / cold.weight / healthy > half ? true : null;
+}
+
+function sentence(
+  store: string,
+  { followed, healthy }: Drop,
+  channel: number,
+  learned: boolean,
+  only: boolean | null,
+  rule: IndicatorRule,
+): string {
+  if (channel < 0)
+    return `Store ${store}: no pressure drop is measured, so dust and frost do not show in it.`;
+  const { value, sigma, test } = followed;
+  if (value === null || sigma === null)
+    return `Store ${store}: its pressure drop is known after an hour of even flow.`;
+  const against = learned ? 'its healthy one' : 'the configured law';
+  const ratio = `${withSigma(value, sigma, 2)} times ${against} at the same flow and temperatures (limit ${rule.limit})`;
+  if (!test.degraded) {
+    const note = healthy.kept ? '' : ' What is healthy is still being learned.';
+    return `Store ${store}: pressure drop ${ratio}.${note}`;
+  }
+  const when =
+    only === true
+      ? ' Only while rock is below freezing; it is gone when the bed is warm.'
+      : only === false
+        ? ' Also while no rock is below freezing.'
+        : ' So far the bed was never free of rock below freezing, so frost and dust cannot be told apart by it.';
+  return `Store ${store}: pressure drop ${ratio}: the bed lets less gas through.${when}`;
+}

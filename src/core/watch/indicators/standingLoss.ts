@@ -1,0 +1,234 @@
+import type { StoreModel, StoreState } from '../../track/storeTracker.js';
+import { type BaselineState, baseline, learnBaseline, startBaseline } from '../baseline.js';
+import type {
+  Indicator,
+  IndicatorInput,
+  IndicatorReason,
+  IndicatorRule,
+  IndicatorsDefinition,
+  IndicatorView,
+} from '../indicator.js';
+import { decisionAt, newInformation, stepSequential } from '../sequential.js';
+import { type Followed, shownAs, startFollowed, withSigma } from './shown.js';
+import { fitRest } from './standingFit.js';
+import { MEAN_S, type Rest, startRest, stepRest } from './standingRest.js';
+
+/** Junctions and gas settle first [s]. */
+const SETTLE_S = 1800;
+/** A rest is looked at anew this often, from this length on: before, no heat has come to a string [s]. */
+const LOOK_S = 2 * 3600;
+const LEAST_S = 5 * 3600;
+/** Without a scan for this long nobody knows what happened meanwhile [s]. */
+const GAP_S = 3600;
+/** Heat comes this far within a day or two: 2 sqrt(alpha t) [m]. */
+const REACH_M = 0.8;
+/** White noise of the change of an hour's mean, with what the model makes wrong of even rock [K]. */
+const NOISE_K = 0.15;
+/** Losses as built over those configured, ln, one sigma: judgement, as for tuning. */
+const PRIOR_SIGMA = 0.35;
+/**
+ * What the model makes wrong anew in each rest, in configured losses, one sigma: healthy rests of the
+ * finer plant came out 0.1 to 0.2 too low, those at twice the loss right.
+ */
+const MODEL_LOSS = 0.1;
+/** A value less certain than this, in configured losses, tells nothing yet. */
+const USELESS = 0.5;
+const RULE = { floor: 0.05, enough: 0.16, least: 1 };
+/** Readings that move otherwise than any cause allows, by mean square over noise, tell nothing [-]. */
+const MISFIT_MOST = 9;
+
+/** A loss with its sigma against other rests of this store, and against the configuration. */
+interface Told {
+  readonly value: number;
+  readonly sigma: number;
+  readonly whole: number;
+}
+
+interface Standing {
+  stood_s: number;
+  look_s: number;
+  rest: Rest | null;
+  /** What the present rest has told so far, in configured losses. */
+  told: Told | null;
+  readonly followed: Followed;
+  readonly healthy: BaselineState;
+}
+
+export interface StandingLossState {
+  readonly stores: Standing[];
+}
+
+/**
+ * Heat lost while standing over what the bed model loses with the configured coefficients. Half an
+ * hour after the flow has stopped the estimate is copied and marched on by itself: as configured, with
+ * losses of mantle and of ends doubled, and with another conductivity. Changes of readings since then,
+ * in which constant offsets cancel, against those of the models give the loss (see fitRest). What a
+ * rest tells more every 2 h goes into the test; at its end it counts to what is healthy, unless the
+ * test leans to degraded.
+ */
+export const STANDING_LOSS: Indicator<StandingLossState> = {
+  kind: 'standing_loss',
+  start: (model) => ({ stores: model.stores.map(startStanding) }),
+  step(state, rule, watching, input) {
+    return input.model.stores.map((store, s) => {
+      const standing = state.stores[s] as Standing;
+      const away_m = fromWall(store);
+      if (away_m <= REACH_M) follow(standing, store, s, rule, watching, input);
+      return view(standing, store, away_m, rule);
+    });
+  },
+};
+
+function startStanding(): Standing {
+  return {
+    stood_s: 0,
+    look_s: 0,
+    rest: null,
+    told: null,
+    followed: startFollowed(),
+    healthy: startBaseline(),
+  };
+}
+
+/** Distance of the outermost string from the wall [m]. */
+function fromWall({ store }: StoreModel): number {
+  const outermost = Math.max(...store.strings.map(({ radius_m }) => radius_m));
+  return store.bed.diameter_m / 2 - outermost;
+}
+
+function follow(
+  standing: Standing,
+  model: StoreModel,
+  s: number,
+  rule: IndicatorRule,
+  watching: IndicatorsDefinition,
+  { state, taken, time_ms, dt_s, unit }: IndicatorInput,
+): void {
+  const { conditions, scan } = taken;
+  const store = state.stores[s] as StoreState;
+  const stands = conditions.mode === 'stand' && conditions.flow_kg_s === 0 && conditions.flowKnown;
+  if (!stands || !store.started || dt_s > GAP_S || taken.stores[s]?.step === 'reacquired') {
+    endRest(standing, watching, time_ms);
+    return;
+  }
+  standing.stood_s += dt_s;
+  if (standing.stood_s < SETTLE_S) return;
+  standing.rest ??= startRest(model, store);
+  standing.look_s += dt_s;
+  const readings = stepRest(standing.rest, model, store, scan.values, conditions.ambient_K, dt_s);
+  if (readings === null || standing.stood_s < LEAST_S || standing.look_s < LOOK_S) return;
+  standing.look_s = 0;
+  const group_K = Math.SQRT2 * unit.estimator.group_offset_sigma_K;
+  const { excess, sigma, fresh, misfit } = fitRest(readings, { group_K, noise_K: NOISE_K });
+  if (!Number.isFinite(sigma) || misfit > MISFIT_MOST) return;
+  const worse = Math.sqrt(Math.max(1, misfit));
+  const now = {
+    value: 1 + excess,
+    sigma: Math.hypot(fresh * worse, MODEL_LOSS),
+    whole: Math.hypot(sigma * worse, MODEL_LOSS),
+  };
+  if (now.whole > USELESS) return;
+  test(standing, now, rule, watching, time_ms);
+  standing.told = now;
+}
+
+function healthyOf({ healthy }: Standing): { value: number; sigma: number; learned: boolean } {
+  const learned = baseline(healthy, RULE);
+  if (learned === null || learned.sigma > PRIOR_SIGMA)
+    return { value: 1, sigma: PRIOR_SIGMA, learned: false };
+  const most = Math.exp(2 * PRIOR_SIGMA);
+  return {
+    value: Math.min(Math.max(learned.value, 1 / most), most),
+    sigma: learned.sigma,
+    learned: true,
+  };
+}
+
+/** What this rest tells more than it did the last time, against what is healthy. */
+function test(
+  standing: Standing,
+  now: Told,
+  rule: IndicatorRule,
+  { in_control_d }: IndicatorsDefinition,
+  time_ms: number,
+): void {
+  const { told, followed } = standing;
+  const known = healthyOf(standing);
+  const spread = known.learned ? known.sigma / known.value : Math.exp(known.sigma) - 1;
+  // Against rests of its own, what the model makes wrong in all of them alike drops out.
+  const own = (one: Told) => ({ value: one.value, sigma: known.learned ? one.sigma : one.whole });
+  followed.value = now.value / known.value;
+  followed.sigma = Math.hypot(own(now).sigma / known.value, followed.value * spread);
+  followed.time_ms = time_ms;
+  followed.decision = decisionAt(in_control_d, LEAST_S);
+  const news = told === null ? own(now) : newInformation(own(told), own(now), 0);
+  if (news === null) return;
+  const healthy = 1 + 2 * spread;
+  const value = news.value / known.value;
+  const sigma = news.sigma / known.value;
+  const degraded = healthy + rule.limit - 1;
+  stepSequential(followed.test, { value, sigma, healthy, degraded }, followed.decision);
+}
+
+function endRest(
+  standing: Standing,
+  { baseline_from_ms }: IndicatorsDefinition,
+  time_ms: number,
+): void {
+  const { told, followed, healthy } = standing;
+  const leans = followed.test.degraded || followed.test.up > 0.25 * followed.decision;
+  if (told !== null && !leans) learnBaseline(healthy, told, time_ms, baseline_from_ms, RULE);
+  standing.stood_s = 0;
+  standing.look_s = 0;
+  standing.rest = null;
+  standing.told = null;
+}
+
+function view(
+  standing: Standing,
+  { store }: StoreModel,
+  away_m: number,
+  rule: IndicatorRule,
+): IndicatorView {
+  const known = healthyOf(standing);
+  const { followed } = standing;
+  let reason: IndicatorReason | null = null;
+  if (away_m > REACH_M) reason = 'not_instrumented';
+  else if (followed.sigma !== null && followed.sigma > rule.limit - 1) reason = 'too_uncertain';
+  return shownAs({
+    kind: 'standing_loss',
+    subject: store.id,
+    unit: '-',
+    rule,
+    followed,
+    healthy: reason === 'not_instrumented' ? null : 1,
+    healthy_from: known.learned ? 'learned' : 'configured',
+    reason,
+    sentence: sentence(store.id, followed, away_m, known, reason, rule),
+  });
+}
+
+function sentence(
+  store: string,
+  { value, sigma, test }: Followed,
+  away_m: number,
+  known: ReturnType<typeof healthyOf>,
+  reason: IndicatorReason | null,
+  rule: IndicatorRule,
+): string {
+  if (reason === 'not_instrumented')
+    return (
+      `Store ${store}: what is lost through the wall cannot be told: the outermost string hangs ` +
+      `${away_m.toFixed(1)} m from it, and heat comes no further than ${REACH_M} m in a day or two. ` +
+      'A string nearer to the wall would show it.'
+    );
+  if (value === null || sigma === null)
+    return `Store ${store}: losses show after ${LEAST_S / MEAN_S} h of standing at a stretch or more.`;
+  const against = known.learned ? 'what it lost when healthy' : 'the configured loss';
+  const figure = `${withSigma(value, sigma, 2)} times ${against} (limit ${rule.limit})`;
+  if (test.degraded)
+    return `Store ${store}: while standing it loses ${figure}: its rock cools or warms too fast near wall and ends.`;
+  if (reason === 'too_uncertain')
+    return `Store ${store}: while standing it loses ${figure}; this rest does not tell it better.`;
+  return `Store ${store}: while standing it loses ${figure}.`;
+}
