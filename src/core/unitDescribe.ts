@@ -15,7 +15,8 @@ import { causesOf } from './watch/causes.js';
 import { cycleScanOf } from './watch/cycle/unitScan.js';
 import { cycleRules, startCycleLog, stepCycleLog } from './watch/cycleLog.js';
 import { stepIndicators } from './watch/indicators.js';
-import { type Spread, stepWatch } from './watch/watch.js';
+import type { SpreadRatio } from './watch/spreadRatio.js';
+import { stepWatch } from './watch/watch.js';
 
 /** The estimate of a scan just taken in, the hours asked for, and what the watch raises. */
 export function describe(model: UnitModel, state: UnitState, taken: Taken, ask: UnitAsk): UnitStep {
@@ -23,7 +24,7 @@ export function describe(model: UnitModel, state: UnitState, taken: Taken, ask: 
   const { scan } = taken;
   const flowing = taken.conditions.flow_kg_s !== 0;
   const stores: Record<string, StoreEstimate> = {};
-  const spread: Record<string, Spread> = {};
+  const spread: Record<string, SpreadRatio | null> = {};
   model.stores.forEach((store, s) => {
     const { energy, fronts, views } = taken.stores[s] as TakenStore;
     const storeState = state.stores[s] as StoreState;
@@ -82,7 +83,6 @@ export function describe(model: UnitModel, state: UnitState, taken: Taken, ask: 
     time_ms: scan.time_ms,
     mode: taken.conditions.mode,
     estimate,
-    spread,
     readingsSeen: taken.readings,
     drops_Pa: dropsOf(unit, scan.values),
     gas,

@@ -25,8 +25,8 @@ export interface Calibration {
  * Error of a flow meter of the usual classes: +/-2 % of the reading, and as much again from no load
  * to rated flow, as two sigmas.
  */
-const METER_SIGMA = 0.01;
-const METER_SLOPE_SIGMA = 0.01;
+export const METER_SIGMA = 0.01;
+export const METER_SLOPE_SIGMA = 0.01;
 /**
  * A meter may be fouled or moved, which is likelier than rock of four sigmas: its sigma is at least
  * this share of the mean ln(flow factor) of the stores.

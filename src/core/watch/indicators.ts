@@ -1,22 +1,46 @@
 import type { UnitDefinition } from '../definitions.js';
-import type {
-  Indicator,
-  IndicatorInput,
-  IndicatorKind,
-  IndicatorsDefinition,
-  IndicatorView,
+import {
+  INDICATOR_KINDS,
+  type Indicator,
+  type IndicatorInput,
+  type IndicatorKind,
+  type IndicatorsDefinition,
+  type IndicatorView,
 } from './indicator.js';
+import { AGREEMENT } from './indicators/agreement.js';
+import { ENERGY_LOST } from './indicators/energyLost.js';
+import { FRONT_TRAVEL } from './indicators/frontTravel.js';
+import { HEAT_TRANSFER } from './indicators/heatTransfer.js';
+import { SENSOR_HEALTH } from './indicators/sensorHealth.js';
+import { SPREAD } from './indicators/spread.js';
+import { STRING_FLOW } from './indicators/stringFlow.js';
 import { INDICATORS_DEFAULT } from './rules.js';
 
-/** Every indicator, in the order in which they are shown. */
-export const INDICATORS: readonly Indicator<unknown>[] = [];
+const ALL: readonly Indicator<unknown>[] = [
+  SPREAD,
+  HEAT_TRANSFER,
+  STRING_FLOW,
+  FRONT_TRAVEL,
+  AGREEMENT,
+  ENERGY_LOST,
+  SENSOR_HEALTH,
+];
+
+const placeOf = ({ kind }: Indicator<unknown>): number => INDICATOR_KINDS.indexOf(kind);
+
+/** Every indicator, in the order of INDICATOR_KINDS, in which they are shown. */
+export const INDICATORS: readonly Indicator<unknown>[] = ALL.toSorted(
+  (a, b) => placeOf(a) - placeOf(b),
+);
 
 /** State of each indicator by kind, made when it is first stepped. Plain and bounded. */
 export type IndicatorStates = Partial<Record<IndicatorKind, unknown>>;
 
-/** How a unit's indicators decide: as configured, else as shipped. */
-export function indicatorsOf(unit: UnitDefinition): IndicatorsDefinition {
-  return unit.watch.indicators ?? INDICATORS_DEFAULT;
+/** How a unit's indicators decide: as configured, else as shipped; the spread ratio has its own block. */
+export function indicatorsOf({ watch }: UnitDefinition): IndicatorsDefinition {
+  if (watch.indicators !== undefined) return watch.indicators;
+  const { rules, ...rest } = INDICATORS_DEFAULT;
+  return { ...rest, rules: { ...rules, spread_ratio: watch.spread_ratio } };
 }
 
 /**

@@ -40,6 +40,7 @@ export const KIND_CLASSES: Readonly<
 
 /** Event that a degraded indicator raises; the others are watched on their own. */
 export const INDICATOR_EVENTS: Readonly<Partial<Record<IndicatorKind, EventKind>>> = {
+  spread_ratio: 'front_spread',
   heat_transfer: 'heat_transfer_low',
   string_flow: 'string_flow_uneven',
   front_travel: 'front_travel_off',

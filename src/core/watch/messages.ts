@@ -46,19 +46,6 @@ export function duration(seconds: number): string {
   return `${(seconds / 3600).toFixed(1)} h`;
 }
 
-export function spreadRaised(store: string, ratio: number, sigma: number, limit: number): string {
-  return (
-    `Store ${store}: its front is ${ratio.toFixed(2)} +/- ${sigma.toFixed(2)} times as wide as a ` +
-    `healthy bed would show after the same history (limit ${limit.toFixed(2)}). A wide front gives ` +
-    'fewer hours than the stored heat suggests. Look at the heat-transfer factor (low: dust or ' +
-    'fines) and at the flow factors of the strings (unlike: gas finds a channel).'
-  );
-}
-
-export function spreadReturned(store: string, ratio: number, limit: number): string {
-  return `Store ${store}: its front is back to ${ratio.toFixed(2)} times the healthy width (limit ${limit.toFixed(2)}).`;
-}
-
 export function sensorRaised(store: string, sensor: RejectedSensor): string {
   const what =
     sensor.verdict === 'group_fault'

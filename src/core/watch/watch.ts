@@ -13,22 +13,16 @@ import {
 } from './condition.js';
 import type { EventKind, WatchEvent } from './event.js';
 import type { IndicatorView } from './indicator.js';
-import type { IndicatorStates } from './indicators.js';
+import { type IndicatorStates, indicatorsOf } from './indicators.js';
 import { INDICATOR_EVENTS, watchEvent } from './kinds.js';
 import * as say from './messages.js';
 import { watchBlind, watchDrop } from './operatorAlarms.js';
-import type { SpreadRatio } from './spreadRatio.js';
-
-/** null where front or twin has no width now. */
-export type Spread = SpreadRatio | null;
 
 export interface WatchInput {
   /** Source time of the scan [ms]. */
   readonly time_ms: number;
   readonly mode: Mode;
   readonly estimate: Estimate;
-  /** By store id. */
-  readonly spread: Readonly<Record<string, Spread>>;
   /** How many readings this scan brought, of any channel. */
   readonly readingsSeen: number;
   /** Measured pressure drop by store id [Pa], null: no reading now; absent: none is measured. */
@@ -49,11 +43,7 @@ export interface WatchState {
   indicators?: IndicatorStates;
 }
 
-/** Front view and tubes disagree beyond this many sigmas of their difference... */
-const DISAGREEMENT = { limit: 3, deadband: 1, on_delay_s: 900, off_delay_s: 900 };
 const AT_ONCE = { on_delay_s: 0, off_delay_s: 0 };
-/** A spread counts as evidence where the ratio less this many sigmas is above the limit. */
-const SPREAD_SIGMAS = 2;
 /** So many rejected sensors of one store are one event: this share of them, and at least so many. */
 const MANY_SHARE = 0.2;
 const MANY_LEAST = 4;
@@ -98,10 +88,9 @@ export function stepWatch(
   for (const store of unit.stores) {
     const estimate = input.estimate.stores[store.id];
     if (estimate === undefined) continue;
-    watchSpread(unit, store, input.spread[store.id] ?? null, step);
     watchSensors(unit, state, store, estimate, step);
     watchOutlet(unit, store, estimate, input.mode, step);
-    watchViews(store, estimate, step);
+    watchViews(unit, store, estimate, step);
   }
   watchGas(input, step);
   watchIndicators(input, step);
@@ -131,30 +120,6 @@ function watchAge(unit: UnitDefinition, state: WatchState, input: WatchInput, st
     age,
     rule.limit,
     (raised) => (raised ? say.staleRaised(unit.id, age, rule.limit) : say.staleReturned(unit.id)),
-  );
-}
-
-/**
- * Wider than the limit only where the ratio less two sigmas is; back only where the ratio itself is
- * below limit less deadband. So a ratio that grows uncertain neither raises nor clears, and one that
- * is not known says nothing.
- */
-function watchSpread(
-  unit: UnitDefinition,
-  store: StoreDefinition,
-  spread: Spread,
-  step: Step,
-): void {
-  const rule = unit.watch.spread_ratio;
-  const ratio = spread?.ratio ?? null;
-  const sure = spread === null ? null : spread.ratio - SPREAD_SIGMAS * spread.sigma;
-  const active = evidenceOf({ ...rule, value: sure }) === 'active';
-  const point = evidenceOf({ ...rule, value: ratio });
-  const evidence = active ? 'active' : point === 'active' ? 'between' : point;
-  step('front_spread', store.id, evidence, rule, ratio, rule.limit, (raised) =>
-    raised
-      ? say.spreadRaised(store.id, ratio ?? Number.NaN, spread?.sigma ?? Number.NaN, rule.limit)
-      : say.spreadReturned(store.id, ratio ?? Number.NaN, rule.limit),
   );
 }
 
@@ -240,15 +205,21 @@ function watchIndicators({ indicators = [], causes = [] }: WatchInput, step: Ste
 }
 
 /** A view that only predicts says nothing; a string without a front has nothing to disagree on. */
-function watchViews(store: StoreDefinition, estimate: StoreEstimate, step: Step): void {
+function watchViews(
+  unit: UnitDefinition,
+  store: StoreDefinition,
+  estimate: StoreEstimate,
+  step: Step,
+): void {
+  const rule = indicatorsOf(unit).rules.front_view;
+  const { limit } = rule;
   for (const view of estimate.front_views) {
     const sigmas = view.disagreement;
     const size = sigmas === null ? 0 : Math.abs(sigmas);
     const evidence =
-      sigmas !== null && !view.seen ? 'unknown' : evidenceOf({ ...DISAGREEMENT, value: size });
-    const { limit } = DISAGREEMENT;
+      sigmas !== null && !view.seen ? 'unknown' : evidenceOf({ ...rule, value: size });
     const subject = `${store.id}/${view.id}`;
-    step('front_view_disagrees', subject, evidence, DISAGREEMENT, sigmas, limit, (raised) =>
+    step('front_view_disagrees', subject, evidence, rule, sigmas, limit, (raised) =>
       raised && sigmas !== null
         ? say.viewRaised(store.id, view.id, sigmas, limit)
         : say.viewReturned(store.id, view.id),

@@ -3,6 +3,7 @@ import { describe, expect, it } from 'vitest';
 import type { StoreDefinition } from '../../../src/core/definitions.js';
 import { SENSOR_VERDICTS, type StoreEstimate } from '../../../src/core/estimate.js';
 import { EVENT_KINDS, type WatchEvent } from '../../../src/core/watch/event.js';
+import type { IndicatorView } from '../../../src/core/watch/indicator.js';
 import { KIND_CLASSES } from '../../../src/core/watch/kinds.js';
 import { startServiceWatch, stepServiceWatch } from '../../../src/core/watch/service.js';
 import { startWatch, stepWatch, type WatchInput } from '../../../src/core/watch/watch.js';
@@ -22,7 +23,7 @@ function run(
   const out: [number, WatchEvent][] = [];
   scans.forEach(({ hot, cold, ...change }, k) => {
     const time_ms = change.time_ms ?? 30_000 * k;
-    const input = { mode: 'discharge' as const, spread: {}, readingsSeen: 10, ...change, time_ms };
+    const input = { mode: 'discharge' as const, readingsSeen: 10, ...change, time_ms };
     const estimate = estimateOf(time_ms, hot, cold);
     for (const event of stepWatch(unit, state, { ...input, estimate }))
       out.push([time_ms / 1000, event]);
@@ -41,11 +42,20 @@ describe('kinds of events', () => {
   });
 });
 
-describe('a front that spreads', () => {
-  const spread = (ratio: number, sigma: number): Scan => ({ spread: { hot: { ratio, sigma } } });
+const spread = (state: IndicatorView['state'], value: number | null): Scan => ({
+  indicators: [
+    {
+      ...{ kind: 'spread_ratio', subject: 'hot', state, value, sigma: 0.1, unit: '-' },
+      ...{ healthy: 1, healthy_from: 'twin', limit: 1.3, deadband: 0.1, score: 1 },
+      ...{ on_delay_s: 60, off_delay_s: 60, reason: null, time: null },
+      sentence: `Store hot: its front is ${value} times as wide.`,
+    },
+  ],
+});
 
-  it('is raised where the ratio is beyond the limit by two sigmas, for the store it concerns', () => {
-    const [first, ...rest] = run(times(5, spread(1.6, 0.1)));
+describe('an indicator that has decided', () => {
+  it('is raised as its event once degraded for the delay, with its sentence', () => {
+    const [first, ...rest] = run(times(5, spread('degraded', 1.6)));
     expect(rest).toEqual([]);
     expect(first![0]).toBe(60);
     expect(first![1]).toMatchObject({
@@ -57,25 +67,20 @@ describe('a front that spreads', () => {
       value: 1.6,
       limit: 1.3,
     });
-    expect(first![1].message).toMatch(/1\.60 \+\/- 0\.10 times.*limit 1\.30/);
+    expect(first![1].message).toBe('Store hot: its front is 1.6 times as wide.');
   });
 
-  it('is not raised while two sigmas leave room for doubt', () => {
-    expect(run(times(50, spread(1.6, 0.16)))).toEqual([]);
-  });
-
-  it('does not return because the ratio grows uncertain or unknown, only because it is small', () => {
+  it('returns only where it is healthy again, not where it can no longer be told', () => {
     const scans = [
-      ...times(4, spread(1.6, 0.1)),
-      ...times(50, spread(1.6, 0.9)),
-      ...times(50, { spread: { hot: null } }),
+      ...times(4, spread('degraded', 1.6)),
+      ...times(50, spread('undetermined', null)),
       ...times(50, {}),
-      ...times(50, spread(1.25, 0.05)),
+      ...times(2, spread('degraded', 1.5)),
     ];
     expect(short(run(scans))).toEqual(['60 one/front_spread/hot raised']);
-    const back = run([...scans, ...times(5, spread(1.15, 0.05))]).at(-1)![1];
+    const back = run([...scans, ...times(5, spread('normal', 1.15))]).at(-1)![1];
     expect(back).toMatchObject({ transition: 'returned', value: 1.15 });
-    expect(back.message).toMatch(/back to 1\.15/);
+    expect(back.message).toMatch(/As healthy again: Store hot: its front is 1\.15/);
   });
 });
 
@@ -260,14 +265,12 @@ describe('watching as a whole', () => {
   const arbitrary = fc.record({
     mode: fc.constantFrom('charge' as const, 'discharge' as const, 'stand' as const),
     readingsSeen: fc.integer({ min: 0, max: 1 }),
-    spread: fc.record({
-      hot: fc.option(
-        fc.record({
-          ratio: fc.double({ min: 0.5, max: 3, noNaN: true }),
-          sigma: fc.double({ min: 0, max: 1, noNaN: true }),
-        }),
-      ),
-    }),
+    indicators: fc
+      .tuple(
+        fc.constantFrom('normal' as const, 'degraded' as const, 'undetermined' as const),
+        fc.double({ min: 0.5, max: 3, noNaN: true }),
+      )
+      .map(([state, ratio]) => spread(state, ratio).indicators as IndicatorView[]),
     hot: fc.record({
       outlet_K: fc.option(fc.double({ min: 600, max: 800, noNaN: true })),
       sensors: fc.record({
@@ -308,7 +311,7 @@ describe('watching as a whole', () => {
   });
 
   it('continues from a saved state as if nothing had been', () => {
-    const scans = times(30, { spread: { hot: { ratio: 1.7, sigma: 0.1 } }, readingsSeen: 0 });
+    const scans = times(30, { ...spread('degraded', 1.7), readingsSeen: 0 });
     const whole = run(scans);
     const state = startWatch();
     const first = run(scans.slice(0, 2), unitOf(), state);

@@ -1,0 +1,150 @@
+import type { StoreModel, StoreState } from '../../track/storeTracker.js';
+import { type FollowRule, type FollowState, follow, followed, startFollow } from '../follow.js';
+import { drawnOut, healthyHours, meanEnthalpy, movedTo } from '../healthyRollout.js';
+import type {
+  Indicator,
+  IndicatorInput,
+  IndicatorRule,
+  IndicatorsDefinition,
+  IndicatorView,
+} from '../indicator.js';
+import { decisionAt } from '../sequential.js';
+import { dayOf, healthyWords, viewOf } from './view.js';
+
+interface Lost {
+  /** Share of the rated energy [-]. */
+  readonly share: number;
+  readonly sigma: number;
+  readonly time_ms: number;
+}
+
+interface UnitFollow {
+  readonly follow: FollowState;
+  /** Newest value, and the one that the present charge has come to so far. */
+  last: Lost | null;
+  charge: Lost | null;
+}
+
+/** One value per charge, two cycles a day. */
+const CHARGE_EVERY_S = 12 * 3600;
+/** Fronts are drawn out by this share to see what their width costs. */
+const PROBE = 0.1;
+/** Where a store has no spread ratio now, its width may be off by so much. */
+const WIDTH_SIGMA = 0.1;
+/** Each rollout is off by 0.2 % of its hours (hours.ts), and the healthy one has neither rings nor steel. */
+const ROLLOUT_SIGMA = 0.003;
+/**
+ * A healthy unit is off from its configuration: phi_h by a factor of 1.5 makes fronts of the finer plant
+ * by a fifth wider or narrower, which costs or gains some 3 % of the rated energy.
+ */
+const CONFIGURED_SIGMA = 0.03;
+const BASELINE = { floor: 0.01, enough: 0.013, least: 2 };
+
+/**
+ * Dispatchable energy lost to degradation: what the unit would deliver at rated power from its present
+ * heat with the healthy twins' fronts, less what it delivers from the estimate, over the rated energy.
+ * Both from the same stored heat, meter and machine, so that what is uncertain there drops out; sigma
+ * is what the widths leave open, and the rollouts. Looked at where the state of charge is rolled out
+ * anyway (every 10 min, on a change of mode), while there is something to discharge; the last value
+ * of each charge is tested, when the stores are fullest.
+ */
+export const ENERGY_LOST: Indicator<UnitFollow> = {
+  kind: 'energy_lost',
+  start: () => ({ follow: startFollow(1), last: null, charge: null }),
+  step(state, rule, watching, input) {
+    const rules = followRule(rule, watching);
+    const { mode } = input.taken.conditions;
+    const lost = lostNow(input);
+    if (lost !== null) state.last = lost;
+    if (mode === 'charge') {
+      if (lost !== null) state.charge = lost;
+    } else if (state.charge !== null) {
+      // The change of mode itself is rolled out: the fullest there is.
+      const { share, sigma, time_ms } = lost ?? state.charge;
+      follow(state.follow, { value: share, sigma }, time_ms, rules);
+      state.charge = null;
+    }
+    return [view(state, rule, rules, input)];
+  },
+};
+
+function followRule(rule: IndicatorRule, watching: IndicatorsDefinition): FollowRule {
+  return {
+    configured: { value: 0, sigma: CONFIGURED_SIGMA },
+    baseline: BASELINE,
+    from_ms: watching.baseline_from_ms,
+    limits: [rule.limit],
+    deadband: rule.deadband,
+    decision: decisionAt(watching.in_control_d, CHARGE_EVERY_S),
+  };
+}
+
+/** null where this scan has no rollout, a twin has no history, or nothing is left to discharge. */
+function lostNow({ model, state, spread, time_ms }: IndicatorInput): Lost | null {
+  const { charge } = state;
+  if (charge === null || charge.time_ms !== time_ms || !(charge.value > 0)) return null;
+  const profiles: Float64Array[] = [];
+  for (let s = 0; s < model.stores.length; s++) {
+    const twin = state.views[s]?.twin;
+    if (!twin?.enthalpy || twin.lost || !state.stores[s]?.started) return null;
+    const mean = meanEnthalpy(model.stores[s] as StoreModel, state.stores[s] as StoreState);
+    const moved = movedTo(twin.enthalpy, mean);
+    if (moved === null) return null;
+    profiles.push(moved);
+  }
+  const { rated_hours } = model.unit;
+  const healthy = healthyHours(model, state, profiles) / rated_hours;
+  if (!(healthy > 0)) return null;
+  let variance = 2 * (ROLLOUT_SIGMA * healthy) ** 2;
+  model.stores.forEach(({ store }, s) => {
+    const own = spread[store.id] ?? null;
+    const width = own === null ? WIDTH_SIGMA : own.sigma / own.ratio;
+    const wider = profiles.map((profile, i) => (i === s ? widened(profile) : profile));
+    const slope = (healthyHours(model, state, wider) / rated_hours - healthy) / PROBE;
+    variance += (slope * width) ** 2;
+  });
+  return { share: healthy - charge.value, sigma: Math.sqrt(variance), time_ms };
+}
+
+/** The same heat with the front drawn out about the middle of its span. */
+function widened(profile: Float64Array): Float64Array {
+  const mean = profile.reduce((sum, h) => sum + h, 0) / profile.length;
+  const half = ((profile[0] as number) + (profile[profile.length - 1] as number)) / 2;
+  const falls = (profile[0] as number) > half;
+  const middle = profile.findIndex((h) => (falls ? h < half : h > half));
+  const wider = drawnOut(profile, 1 + PROBE, middle < 0 ? profile.length / 2 : middle);
+  return movedTo(wider, mean) ?? wider;
+}
+
+function view(
+  state: UnitFollow,
+  rule: IndicatorRule,
+  rules: FollowRule,
+  { unit }: IndicatorInput,
+): IndicatorView {
+  const result = followed(state.follow, rules);
+  const { last } = state;
+  const energy = (share: number) => (share * unit.rated_hours * unit.rated_power_W) / 1e6;
+  const healthy = result.healthy.value;
+  const off = (last?.share ?? 0) - healthy;
+  const is = `Unit ${unit.id}: degraded beds cost ${energy(off).toFixed(2)} +/- ${energy(Math.hypot(last?.sigma ?? 0, result.healthy.sigma)).toFixed(2)} MWh_el at rated power from the present heat, ${(100 * off).toFixed(1)} % of the rated energy`;
+  const bracket = `(${healthyWords(state.follow, result.healthy)}; limit ${(100 * rule.limit).toFixed(0)} %)`;
+  const sentence = {
+    degraded: `${is} ${bracket}. Offers and hours already allow for it; see the other indicators for where it comes from.`,
+    normal: `${is} ${bracket}.`,
+    undetermined:
+      result.reason === 'learning'
+        ? `${is} ${bracket}. What is healthy for it is still being learned, charge by charge.`
+        : `Unit ${unit.id}: what degraded beds cost is not known before the first charge is over.`,
+  }[result.state];
+  return viewOf('energy_lost', unit.id, rule, result, {
+    value: last?.share ?? null,
+    sigma: last?.sigma ?? null,
+    unit: '-',
+    healthy,
+    limit: healthy + rule.limit,
+    deadband: rule.deadband,
+    time: dayOf(last?.time_ms ?? null),
+    sentence,
+  });
+}
