@@ -234,6 +234,13 @@ function close(
 ): CycleRecord | null {
   const { open, beside, moments } = state;
   if (open === null || beside === null) return null;
+  if (state.begunBefore && (open.modes[state.mode]?.seconds ?? 0) < rules.confirm_s) {
+    // The log began with a flicker: nothing was seen of a run.
+    merge(open, beside);
+    Object.assign(state, { mode: next, beside: null, against_s: 0 });
+    Object.assign(state.running_s, { charge: 0, discharge: 0 });
+    return null;
+  }
   const drawn = state.drawn_MWh - beside.drawn_MWh;
   const delivered = state.delivered_MWh - beside.delivered_MWh;
   const whole = (moments.time_ms[0] ?? Number.POSITIVE_INFINITY) <= open.start.time_ms;

@@ -83,8 +83,8 @@ export function setEdge(
  * two points linearly. So nothing has to be said of the heat that stays in the stores, however full or
  * empty they were left, and of the losses of stands between the two moments all count. The stores' mean,
  * since one gas stream fills and empties both. Where no moment was as empty (a discharge that went
- * lower than ever), the emptiest one within `AS_EMPTY` is taken and the charge drawn is extended in
- * proportion: drawn d z/(z_most - z_from) more for d z below.
+ * lower than ever), the emptiest one within `AS_EMPTY` is taken and what was drawn is extended in
+ * proportion: drawn dz/(sum of all rises) more for dz below.
  *
  * @returns null where nothing is comparable: no such moment, less than `LEAST` in between, or a store
  *   that differs by more than `SAME`
@@ -114,7 +114,11 @@ export function roundTrip(moments: Moments, discharge_ms: number): RoundTrip | n
   }
   const low = charge[emptiest] as number;
   if (low - z > AS_EMPTY || top - low < LEAST) return null;
-  return between(moments, emptiest, 0, end, 1 + (low - z) / (top - low));
+  let rise = 0;
+  for (let i = emptiest + 1; i <= end; i++) {
+    rise += Math.max(0, (charge[i] as number) - (charge[i - 1] as number));
+  }
+  return between(moments, emptiest, 0, end, 1 + (low - z) / rise);
 }
 
 /** From a moment, `at` of the way from point `i` to the next, until the point `end`. */
