@@ -230,12 +230,16 @@ export function predictTube(
   const sign = Math.sign(drive.massFlux_kg_m2s);
   loosenPositions(model, state, work.gasLag_m, sign);
   for (let i = 0; i < layout.cells; i++) state.gasLag_m[i] = sign * (work.gasLag_m[i] as number);
+  // The two cells at the middle, so that a bed turned end for end has the same.
+  const films = work.filmSlope;
+  const [below, above] = [(layout.cells - 1) >> 1, layout.cells >> 1];
+  const filmSlope = ((films[below] as number) + (films[above] as number)) / 2;
   state.gas = {
     inlet_K: drive.inlet_K,
     inletSigma_K: drive.inletSigma_K,
     flow: state.further[layout.flow - layout.cells] as number,
     transfer: state.further[layout.transfer - layout.cells] as number,
-    flowSlope: flowing ? 1 - (work.filmSlope[layout.cells >> 1] as number) : 0,
+    flowSlope: flowing ? 1 - filmSlope : 0,
   };
 }
 
