@@ -3,8 +3,8 @@
  * healthy lead (a day with part loads, a charge, 36 h of rest), one plant, machine, meter and set of
  * sensors per seed; and healthy days of cycling at changing power and weather.
  *
- *   npm run score:watch -- [--seeds 20] [--tuning] [--only transfer-16,weeks] [--workers 2]
- *     [--strict] [--truths-only]
+ *   npm run score:watch -- [--seeds 20] [--tuning] [--only branches,weeks] [--workers 2] [--strict]
+ *     [--truths-only]
  *   npx tsx tools/watchScore.ts --trace SEED BRANCH [--kinds heat_transfer,string_flow] [--every 1]
  *     [--before]
  *
@@ -23,6 +23,8 @@
 import { parseArgs } from 'node:util';
 import { helpIfAsked } from './help.js';
 import { codeHash } from './score/codeHash.js';
+import { tableText } from './score/table.js';
+import { PARTS, type Part, scoreWatch, WATCH_FROM } from './watch/runWatch.js';
 import { trace } from './watch/trace.js';
 import { branchOf } from './watch/watchJob.js';
 
@@ -70,3 +72,22 @@ if (values.trace !== undefined) {
   trace(options, await codeHash('tools/watch/watchTruth.ts'));
   process.exit(0);
 }
+
+const parts = (values.only ?? PARTS.join(',')).split(',');
+const unknown = parts.filter((part) => !(PARTS as readonly string[]).includes(part));
+if (unknown.length > 0) refuse(`--only must be of ${PARTS.join(', ')}; got ${unknown.join(', ')}`);
+const { text, blocks, failures } = await scoreWatch({
+  from: values.tuning ? 1 : WATCH_FROM,
+  seeds: above('seeds', values.seeds),
+  parts: new Set(parts as Part[]),
+  workers: above('workers', values.workers),
+  truths: values['truths-only'],
+  progress: (line) => console.error(line),
+});
+for (const { job, error } of failures) {
+  console.error(`${job.kind} with seed ${job.seed} failed: ${error}`);
+}
+console.log(text);
+process.stdout.write(tableText(blocks));
+const missed = blocks.flatMap((block) => block.figures.filter((f) => f.met === false));
+process.exit(failures.length > 0 || (values.strict && missed.length > 0) ? 1 : 0);

@@ -8,7 +8,7 @@ export const folder = join(root, '.score');
 
 /** Makes the folders of a kind and keeps the last few others of that kind that were used. */
 export function keepFolders(
-  kind: 'truth' | 'results',
+  kind: 'truth' | 'results' | 'watch',
   mine: readonly string[],
   others: number,
 ): void {

@@ -1,23 +1,35 @@
 import { type ChildProcess, fork } from 'node:child_process';
 import { fileURLToPath } from 'node:url';
-import type { Hashes, Job } from './job.js';
+
+/** What a process answers to a job; the rest is the caller's. */
+export interface Answer<J> {
+  readonly job: J;
+  readonly cpu_s?: number;
+  readonly error?: string;
+}
+
+const SCORE = new URL('worker.ts', import.meta.url);
 
 /**
  * Runs jobs in some processes. A job that fails is told and counted; the others go on.
+ * @param hashes sent along with every job
+ * @param file what a process runs; it gets `{ job, hashes }` and answers with an `Answer`
  * @returns the failures
  */
-export async function runJobs(
-  jobs: readonly Job[],
-  hashes: Hashes,
+export async function runJobs<J, H>(
+  jobs: readonly J[],
+  hashes: H,
   workers: number,
-  done: (job: Job, cpu_s: number) => void,
-): Promise<{ job: Job; error: string }[]> {
+  done: (job: J, cpu_s: number, answer: Answer<J>) => void,
+  file: URL = SCORE,
+): Promise<{ job: J; error: string }[]> {
   const waiting = [...jobs];
-  const failures: { job: Job; error: string }[] = [];
+  const failures: { job: J; error: string }[] = [];
   const running = Array.from({ length: Math.min(workers, jobs.length) }, () =>
-    work(waiting, hashes, (job, cpu_s, error) => {
+    work(waiting, hashes, file, (answer) => {
+      const { job, cpu_s, error } = answer;
       if (error !== undefined) failures.push({ job, error });
-      done(job, cpu_s);
+      done(job, cpu_s ?? 0, answer);
     }),
   );
   await Promise.all(running);
@@ -26,26 +38,26 @@ export async function runJobs(
   return failures;
 }
 
-function work(
-  waiting: Job[],
-  hashes: Hashes,
-  done: (job: Job, cpu_s: number, error?: string) => void,
+function work<J, H>(
+  waiting: J[],
+  hashes: H,
+  file: URL,
+  done: (answer: Answer<J>) => void,
 ): Promise<void> {
-  const file = fileURLToPath(new URL('worker.ts', import.meta.url));
-  const child: ChildProcess = fork(file, { execArgv: ['--import', 'tsx'] });
+  const child: ChildProcess = fork(fileURLToPath(file), { execArgv: ['--import', 'tsx'] });
   return new Promise((resolve) => {
-    let running: Job | undefined;
+    let running: J | undefined;
     const next = () => {
       running = waiting.shift();
       if (running) child.send({ job: running, hashes });
       else child.disconnect();
     };
-    child.on('message', (answer: { job: Job; cpu_s?: number; error?: string }) => {
-      done(answer.job, answer.cpu_s ?? 0, answer.error);
+    child.on('message', (answer: Answer<J>) => {
+      done(answer);
       next();
     });
     child.on('exit', (code, signal) => {
-      if (running) done(running, 0, `its process ended: ${signal ?? code}`);
+      if (running) done({ job: running, error: `its process ended: ${signal ?? code}` });
       resolve();
     });
     next();
