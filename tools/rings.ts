@@ -8,7 +8,7 @@
  * first and last seed of the nominal day. What all seeds have in common at an hour, the wall, is taken
  * out first.
  */
-import { eveningTime } from '../src/core/track/unseenFlow.js';
+import type { StoreModel } from '../src/core/track/storeTracker.js';
 import { unitModel } from '../src/core/unitModel.js';
 import { drawPlant, type StoreDraw } from '../test/plant/draws.js';
 import type { StoreGeometry } from '../test/plant/geometry.js';
@@ -95,6 +95,19 @@ for (const set of ['all', 'five'] as const) {
       `${set} ${id}: off ${rms.toFixed(3)} % rms, tau ${tau_h.toFixed(0)} h; ${words.join('; ')}`,
     );
   }
+}
+
+/**
+ * Time in which fronts even out sideways over the width W for which a string stands, as a wave of
+ * that length does: tau = (W/2 pi)^2 C/(k + 0.1 G cf d), W = radius over number of strings [s].
+ */
+function eveningTime({ store, tables }: StoreModel, flux_kg_m2s: number): number {
+  const { bed, strings } = store;
+  const middle = tables.segments >> 1;
+  const gas = Math.abs(flux_kg_m2s) * tables.fluidHeatCapacity[middle]!;
+  const conductivity = tables.stagnant[middle]! + 0.1 * gas * bed.particle_diameter_m;
+  const width_m = bed.diameter_m / 2 / strings.length;
+  return ((width_m / (2 * Math.PI)) ** 2 * tables.heatCapacity[middle]!) / conductivity;
 }
 
 /** All rows in one, less the mean over the rows at each place. */

@@ -14,7 +14,6 @@ import {
   type TubeState,
   tubeModel,
 } from './tube.js';
-import { evenOut } from './unseenFlow.js';
 import {
   resetWall,
   shareAround,
@@ -133,7 +132,6 @@ export function stepStore(
   }
   if (drive !== null) {
     state.known_s += drive.dt_s;
-    evenOut(model, state, drive);
     model.tubes.forEach((tube, k) => {
       predictTube(tube, state.tubes[k] as TubeState, drive, model.scratch[k] as TubeScratch);
     });

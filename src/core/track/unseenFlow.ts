@@ -3,27 +3,17 @@ import { displacedSigma } from './judgeDisplaced.js';
 import { referenceEnthalpies } from './storeEnergy.js';
 import type { StoreModel, StoreState } from './storeTracker.js';
 import { streamsOf } from './streams.js';
-import type { TubeDrive, TubeState } from './tube.js';
-import { ONE_RING, RADIAL_MIXING } from './wallZone.js';
+import type { TubeState } from './tube.js';
 
 /**
  * A string samples one ring of the part of the bed for which it stands; gas flows a little
  * differently in the rings that it does not see. Their lead or lag over the string grows with the
- * way x that the front goes and turns with the flow. As rock exchanges heat sideways it evens out:
- * over the width W for which a string stands, what leads in one half and lags in the other does so
- * as a wave of that length,
+ * way that the front has gone since it was even, and turns with the flow:
  *
  *   sigma_k = UNSEEN_FLOW |x_E - x_0| / L,     sigma_store^2 = sum_k w_k^2 sigma_k^2
- *   dx_0/dt = (x_E - x_0)/tau,     tau = (W/2 pi)^2 C/(k + 0.1 G cf d),     W = R/(rings of strings)
  *
- * in state of charge; x_0 is where the fronts would be even, k the stagnant conductivity. No reading
- * can show it. About half a per cent between a ring and its neighbourhood in a bed of hundreds of
- * pieces across: common practice, no source.
- *
- * In the finer plant, whose rings are drawn, the rock at the strings is off the store by their flow
- * times x_E - x_0 (tools/rings.ts, a day, nine seeds): correlation 0.96 (hot) and 0.98 (cold) with three
- * strings, tau 12 and 37 h, but 0.64 and 0.90 without the exchange; 0.95 and 0.99 with one string, tau
- * above 100 h.
+ * in state of charge. No reading can show it. About half a per cent between a ring and its
+ * neighbourhood in a bed of hundreds of pieces across: common practice, no source.
  */
 const UNSEEN_FLOW = 0.006;
 /** A front this close to an end of the bed is swept out: what follows starts even. */
@@ -36,35 +26,6 @@ export function followOrigin(model: StoreModel, state: StoreState, restarted: bo
   if (share < SWEPT || share > 1 - SWEPT) state.origin_m = x;
   // Drawn anew in mid-bed it is not known since when the fronts have run apart: from the inlet on.
   else if (restarted) state.origin_m = 0;
-}
-
-/** Lets the fronts even out sideways over a step, x_0 above (changed in place). */
-export function evenOut(
-  model: StoreModel,
-  state: StoreState,
-  drive: Pick<TubeDrive, 'massFlux_kg_m2s' | 'dt_s'>,
-): void {
-  const x = storeEnergyPosition(model, state);
-  const left = Math.exp(-drive.dt_s / eveningTime(model, drive.massFlux_kg_m2s));
-  state.origin_m = x + (state.origin_m - x) * left;
-}
-
-/** Time in which fronts even out sideways over what a string stands for, tau above [s]. */
-export function eveningTime(model: StoreModel, massFlux_kg_m2s: number): number {
-  const { store, tables } = model;
-  const { bed, strings } = store;
-  const radius = bed.diameter_m / 2;
-  const radii = strings.map((s) => s.radius_m).sort((a, b) => a - b);
-  const rings = radii.filter((r, i) => i === 0 || r - (radii[i - 1] as number) > ONE_RING * radius);
-  const middle = tables.segments >> 1;
-  const mixing =
-    RADIAL_MIXING *
-    Math.abs(massFlux_kg_m2s) *
-    (tables.fluidHeatCapacity[middle] as number) *
-    bed.particle_diameter_m;
-  const conductivity = (tables.stagnant[middle] as number) + mixing;
-  const width = radius / rings.length;
-  return ((width / (2 * Math.PI)) ** 2 * (tables.heatCapacity[middle] as number)) / conductivity;
 }
 
 /**

@@ -72,7 +72,7 @@ const LEAST_SHARE = 0.01;
 /** Contact and radiation between rock and wall [W/m2K]: common practice for a packed wall, no source. */
 const CONTACT_W_M2K = 10;
 /** Radial mixing over G cf d (Wakao & Kaguei 1982, radial dispersion 0.1 Re Pr k_f). */
-export const RADIAL_MIXING = 0.1;
+const RADIAL_MIXING = 0.1;
 /**
  * Flow that the looser packing lets through at the wall over that of the bed far from it, as the
  * thickness of bed [particle diameters] that would pass it. The equations of Ergun and Brinkman for
@@ -83,7 +83,7 @@ export const RADIAL_MIXING = 0.1;
 const WALL_FLOW_DIAMETERS = 0.35;
 const WALL_FLOW_SIGMA_DIAMETERS = 0.15;
 /** Strings whose radii differ by less than this share of the bed's stand in one ring. */
-export const ONE_RING = 0.03;
+const ONE_RING = 0.03;
 /** Of the rock between the outermost string and the wall, at most this share is layers. */
 const MOST_OF_WAY = 0.8;
 

@@ -1,6 +1,6 @@
 import type { StoreModel, StoreState } from '../track/storeTracker.js';
 import type { TubeModel, TubeScratch } from '../track/tube.js';
-import { evenOut, followOrigin } from '../track/unseenFlow.js';
+import { followOrigin } from '../track/unseenFlow.js';
 import { stepWall, type WallState } from '../track/wallZone.js';
 import type { Course, CourseStep, TubeMean } from './course.js';
 import { freshState } from './freshState.js';
@@ -61,7 +61,6 @@ export function* weighSensors(
         takeMean(tube, state.tubes[k] as TubeMean, (store.tubes[k] as TubeModel).layout);
       }
     }
-    evenOut(store, state, drive);
     followOrigin(store, state, false);
     done += base.length + (variants?.tubes.length ?? 0);
     if (n >= weigh_from && variants !== null) {
