@@ -51,6 +51,7 @@ const RULES: readonly Rule[] = [
   ),
   adapter('recording'),
   adapter('notify'),
+  adapter('report', /^d3-(scale|shape)$/),
   { of: /^src\/config\//, may: [/^src\/config\//, core, /^src\/errors$/, /^zod$/, /^yaml$/, node] },
   {
     of: /^src\/plant\//,
@@ -70,7 +71,7 @@ const RULES: readonly Rule[] = [
       /^src\/daemon(\/|$)/,
       /^src\/config\//,
       core,
-      /^src\/adapters\/(recording|history)\//,
+      /^src\/adapters\/(recording|history|report)\//,
       errors,
       /^commander$/,
       /^cli-progress$/,

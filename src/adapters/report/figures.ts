@@ -156,12 +156,17 @@ function trips(data: ReportData): string {
   );
 }
 
+/** A shorter rest loses less than its sigma. */
+const LEAST_REST_H = 2;
+
 function losses(data: ReportData): string {
   const series = overRuns(data, (run, cycle) => {
-    const isRest = cycle.kind === 'stand' && hoursOf(cycle) >= 1;
-    return {
-      y: isRest && run.lost_MWh_th !== null ? (1000 * run.lost_MWh_th) / hoursOf(cycle) : null,
-    };
+    const hours = hoursOf(cycle);
+    if (cycle.kind !== 'stand' || hours < LEAST_REST_H || run.lost_MWh_th === null)
+      return { y: null };
+    // Each end of the rest is known by as much; what both have in common cancels, so this is the most.
+    const sigma = (Math.SQRT2 * 1000 * run.stored_sigma_MWh_th) / hours;
+    return { y: (1000 * run.lost_MWh_th) / hours, sigma };
   });
   return figure(
     plot({
@@ -172,7 +177,7 @@ function losses(data: ReportData): string {
       hold: [0],
       height: 140,
     }),
-    'Heat or cold lost per hour in each stand of an hour or more.',
+    `Heat or cold lost per hour in each stand of ${LEAST_REST_H} h or more, with the most that its sigma can be.`,
   );
 }
 

@@ -47,7 +47,7 @@ export interface PlotOptions {
 }
 
 const WIDTH = 700;
-const EDGE = { top: 16, right: 92, bottom: 28, left: 56 };
+const EDGE = { top: 24, right: 92, bottom: 28, left: 56 };
 const DASHES: Readonly<Record<Look, string>> = {
   solid: '',
   dashed: '7 3',
@@ -133,17 +133,15 @@ function axes(options: PlotOptions, x: X, y: ScaleLinear<number, number>, height
   return (
     `${rows.join('')}<line class="axis" x1="${EDGE.left}" x2="${right}" y1="${base}" y2="${base}"/>` +
     `${columns.join('')}${x_label}` +
-    `<text class="tick" x="4" y="10">${escapeText(options.y_label)}</text>`
+    `<text class="tick" x="4" y="9">${escapeText(options.y_label)}</text>`
   );
 }
 
-/** Month and day, with the hour where the ticks are closer than a day; UTC as all times of a report. */
+/** Month and day, or the hour for a tick within a day; UTC as all times of a report. */
 function timeTicks(x: ScaleTime<number, number>): [number, string][] {
-  const ticks = x.ticks(7).map(Number);
-  const close = ticks.some((tick, i) => i > 0 && tick - (ticks[i - 1] as number) < 86_400_000);
-  return ticks.map((tick) => {
-    const text = new Date(tick).toISOString();
-    return [tick, close ? `${text.slice(5, 10)} ${text.slice(11, 16)}` : text.slice(5, 10)];
+  return x.ticks(7).map((tick) => {
+    const text = tick.toISOString();
+    return [Number(tick), Number(tick) % 86_400_000 === 0 ? text.slice(5, 10) : text.slice(11, 16)];
   });
 }
 

@@ -9,8 +9,7 @@ export function reportCsv({ cycles, stores }: ReportData): string {
   const rows = cycles.flatMap((cycle) =>
     stores.map(({ id }) => {
       const run = cycle.stores[id];
-      const at = (share: number) =>
-        run?.widths.find(({ place_m }) => nearShare(place_m, share, stores, id));
+      const at = (share: number) => run?.widths.find((width) => width.share === share);
       return [
         ...[cycle.no, cycle.kind, cycle.from, cycle.to, hoursOf(cycle), cycle.incomplete.join(' ')],
         ...[cycle.drawn_MWh_el, cycle.delivered_MWh_el, cycle.round_trip, id],
@@ -40,16 +39,6 @@ const HEAD = [
   ...['heat_transfer_factor', 'heat_transfer_factor_sigma', 'flow_factors'],
   ...['thermocouples_rejected', 'raised'],
 ];
-
-function nearShare(
-  place_m: number,
-  share: number,
-  stores: ReportData['stores'],
-  id: string,
-): boolean {
-  const length = stores.find((store) => store.id === id)?.length_m ?? Number.NaN;
-  return Math.abs(place_m / length - share) < 0.01;
-}
 
 function field(value: string | number | null | undefined): string {
   if (value === null || value === undefined) return '';

@@ -36,10 +36,14 @@ svg .label{fill:var(--ink)}
 table{border-collapse:collapse;width:100%;font-size:.82rem;margin:.4rem 0}
 th,td{text-align:left;padding:.22rem .5rem .22rem 0;border-bottom:1px solid var(--rule);vertical-align:top}
 th{font-weight:600;border-bottom:1px solid var(--ink)}
-td.n,th.n{text-align:right;white-space:nowrap}
+td.n,th.n{text-align:right}
+td.n{white-space:nowrap}
+th{vertical-align:bottom}
 tr{break-inside:avoid}
 thead{display:table-header-group}
 .wide{overflow-x:auto}
+.time{white-space:nowrap}
+.grids{display:grid;grid-template-columns:repeat(auto-fit,minmax(18rem,1fr));gap:0 2rem}
 .bad{color:var(--urgent);font-weight:600}
 .caution{border:1.5px solid var(--ink);padding:.6rem .9rem;margin:2rem 0 0;break-inside:avoid}
 .empty{color:var(--soft);font-style:italic}

@@ -68,15 +68,30 @@ function short(value: number): string {
   return value.toFixed(Math.min(5, digits));
 }
 
-export function sensorTable({ sensors }: ReportData): string {
-  const rows = sensors.map(({ id, store, string, position_m, group, now, verdicts }) => [
+/** A store as it hangs: one row per height, one column per string; then what was not believed and when. */
+export function sensorTable(data: ReportData): string {
+  const all = data.sensors;
+  const grids = data.stores.map(({ id, strings }) => {
+    const own = all.filter(({ store }) => store === id);
+    const heights = [...new Set(own.map(({ position_m }) => position_m))].sort((a, b) => a - b);
+    const rows = heights.map((x) => [
+      x.toFixed(2),
+      ...strings.map((string) => {
+        const here = own.find((s) => s.string === string && s.position_m === x);
+        return here === undefined ? '' : sensorCell(here);
+      }),
+    ]);
+    const heads = [n('x [m]'), ...strings.map((string) => t(text(string)))];
+    return `<div><h3>Store ${text(id)}</h3>${table(heads, rows)}</div>`;
+  });
+  const told = all.filter(({ now, verdicts }) => now !== null || verdicts.length > 0);
+  const rows = told.map(({ id, store, group, now, verdicts }) => [
     text(id),
-    `${text(store)} ${text(string)}`,
-    position_m.toFixed(2),
+    text(store),
     text(group ?? '-'),
     now === null
       ? 'believed'
-      : `<span class="bad">${text(now.verdict.replaceAll('_', ' '))}</span> since ${minuteOf(now.since)}`,
+      : `${text(now.verdict.replaceAll('_', ' '))} since ${minuteOf(now.since)}: ${text(now.evidence)}`,
     verdicts.length === 0
       ? '-'
       : verdicts
@@ -87,15 +102,15 @@ export function sensorTable({ sensors }: ReportData): string {
           )
           .join('<br>'),
   ]);
-  const heads = [
-    t('thermocouple'),
-    t('where'),
-    n('x [m]'),
-    t('group'),
-    t('at the end'),
-    t('not believed'),
-  ];
-  return table(heads, rows);
+  const heads = [t('thermocouple'), t('store'), t('group'), t('at the end'), t('not believed')];
+  const list =
+    told.length === 0 ? '<p>Every thermocouple was believed throughout.</p>' : table(heads, rows);
+  return `<div class="grids">${grids.join('')}</div>${list}`;
+}
+
+function sensorCell({ now, verdicts }: ReportData['sensors'][number]): string {
+  if (now !== null) return `<span class="bad">${text(now.verdict.replaceAll('_', ' '))}</span>`;
+  return verdicts.length > 0 ? 'believed again' : '<span class="soft">believed</span>';
 }
 
 export function cycleTable({ cycles, stores }: ReportData): string {
@@ -122,10 +137,10 @@ export function cycleTable({ cycles, stores }: ReportData): string {
     String(cycle.raised.length || '-'),
   ]);
   const heads = [
-    ...[t('from'), t('run'), n('h'), n('drawn MWh_el'), n('delivered MWh_el')],
+    ...[t('from'), t('run'), n('h'), n('drawn MWh el'), n('given MWh el')],
     ...stores.flatMap(({ id }) => [
       n(`${text(id)} charge %`),
-      n(`${text(id)} lost MWh_th`),
+      n(`${text(id)} lost MWh th`),
       n(`${text(id)} width m`),
     ]),
     ...[n('round trip'), n('raised')],
@@ -167,11 +182,13 @@ export function eventTable({ events, alarms }: ReportData): string {
 }
 
 function number(value: number | null, digits: number): string {
-  return value === null ? '-' : value.toFixed(digits);
+  if (value === null) return '-';
+  // A rounded loss of nothing has no sign.
+  return value.toFixed(digits).replace(/^-(0\.?0*)$/, '$1');
 }
 
 function minuteOf(iso: string): string {
-  return `${iso.slice(5, 10)} ${iso.slice(11, 16)}`;
+  return `<span class="time">${iso.slice(5, 10)} ${iso.slice(11, 16)}</span>`;
 }
 
 export function degC(kelvin: number): number {

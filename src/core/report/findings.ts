@@ -185,7 +185,10 @@ function nothing({ indicators, cycles }: ReportData): Finding {
     level: 'note',
     subject: 'unit',
     title: 'Nothing that needs attention was found',
-    text: `${normal} of ${indicators.length} indicators are as healthy, over ${cycles.length} runs.`,
+    text:
+      indicators.length === 0
+        ? `No indicator was kept, so this rests on ${cycles.length} runs and the thermocouples alone.`
+        : `${normal} of ${indicators.length} indicators are as healthy, over ${cycles.length} runs.`,
     evidence: [],
     check: null,
   };
