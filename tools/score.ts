@@ -10,6 +10,8 @@
  * those for scoring and no fresh ones. --strict ends with code 1 where a goal is missed. --quick takes
  * two seeds and short scenarios, and ends with code 1 where a goal for each single run is missed that
  * is not among the known ones; --brief leaves the table out. All figures also stand in .score/latest.json.
+ * `watch` among --only stands for the watch's own score (npm run score:watch), which comes last, with
+ * at most 20 seeds.
  */
 import { writeFileSync } from 'node:fs';
 import { join } from 'node:path';
@@ -26,6 +28,7 @@ import { QUICK, SCENARIOS } from './score/scenarios.js';
 import { FIXED_FROM, freshSeeds, seedsDone } from './score/seeds.js';
 import { tableText } from './score/table.js';
 import { truthIsKept } from './score/truthOf.js';
+import { PARTS, scoreWatch, WATCH_FROM, WATCH_SEEDS, type WatchScore } from './watch/runWatch.js';
 
 helpIfAsked(import.meta.url);
 
@@ -64,11 +67,10 @@ function chosen(name: string, text: string | undefined, all: readonly string[]):
 }
 
 const list = values.quick ? QUICK : SCENARIOS;
-const only = chosen(
-  'only',
-  values.only,
-  list.map((s) => s.id),
-);
+const only = chosen('only', values.only, [
+  ...list.map((s) => s.id),
+  ...(values.quick ? [] : ['watch']),
+]);
 const rows = chosen('rows', values.rows, [
   ...new Set(list.flatMap((s) => s.rows.map((r) => r.id))),
 ]);
@@ -101,6 +103,23 @@ keepFolders('truth', [hashes.truth], 1);
 // Eight versions of all modules.
 keepFolders('results', Object.values(hashes.results), 8 * new Set(list.map((s) => s.code)).size);
 
+/** The watch's own score, where it is asked for: it has no rows of sensors. */
+async function watchScore(): Promise<WatchScore | null> {
+  if (!only.has('watch') || values.rows !== undefined) return null;
+  const watched = await scoreWatch({
+    from: values.tuning ? 1 : WATCH_FROM,
+    seeds: Math.min(WATCH_SEEDS, fixed.length),
+    parts: new Set(PARTS),
+    workers,
+    truths: values['truths-only'],
+    progress: (line) => console.error(`watch: ${line}`),
+  });
+  for (const { job, error } of watched.failures) {
+    console.error(`watch, ${job.kind} with seed ${job.seed} failed: ${error}`);
+  }
+  return watched;
+}
+
 /** Makes the truths that are missing, one job for each, and ends. */
 async function onlyTruths(): Promise<never> {
   const missing = new Map<string, Job>();
@@ -112,7 +131,8 @@ async function onlyTruths(): Promise<never> {
   for (const { job, error } of lost) console.error(`${job.scenario} ${job.seed}: ${error}`);
   const seconds = ((performance.now() - started) / 1000).toFixed(0);
   console.log(`${missing.size - lost.length} truths made in ${seconds} s`);
-  process.exit(lost.length > 0 ? 1 : 0);
+  const watched = await watchScore();
+  process.exit(lost.length + (watched?.failures.length ?? 0) > 0 ? 1 : 0);
 }
 
 const all = scenarios.flatMap((scenario) =>
@@ -149,7 +169,8 @@ for (const { job, error } of failures) {
   console.error(`${job.scenario} with seed ${job.seed} failed: ${error}`);
 }
 
-const blocks = blocksOf(
+const watched = await watchScore();
+const estimated = blocksOf(
   scenarios,
   (scenario, row) =>
     all
@@ -158,7 +179,9 @@ const blocks = blocksOf(
       .filter((result) => result !== null),
   fresh,
 );
+const blocks = [...(scenarios.length > 0 ? estimated : []), ...(watched?.blocks ?? [])];
 if (!values.brief) process.stdout.write(tableText(blocks));
+if (!values.brief && watched !== null) console.log(`\n${watched.text}`);
 const marked = blocks.flatMap((block) => block.figures.filter((f) => f.met !== null));
 const missed = marked.filter((f) => f.met === false);
 const seconds = Math.round((performance.now() - started) / 1000);
@@ -184,7 +207,8 @@ writeFileSync(
   `${JSON.stringify(record, null, 1)}\n`,
 );
 if (fresh.length > 0 && failures.length === 0) seedsDone();
-let failed = failures.length > 0 || (values.strict && missed.length > 0);
+const broken = failures.length + (watched?.failures.length ?? 0);
+let failed = broken > 0 || (values.strict && missed.length > 0);
 if (values.quick) {
   const misses = missesOf(blocks);
   for (const words of misses.known) console.log(`known miss: ${words}`);

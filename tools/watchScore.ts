@@ -24,7 +24,7 @@ import { parseArgs } from 'node:util';
 import { helpIfAsked } from './help.js';
 import { codeHash } from './score/codeHash.js';
 import { tableText } from './score/table.js';
-import { PARTS, type Part, scoreWatch, WATCH_FROM } from './watch/runWatch.js';
+import { PARTS, type Part, scoreWatch, WATCH_FROM, WATCH_SEEDS } from './watch/runWatch.js';
 import { trace } from './watch/trace.js';
 import { branchOf } from './watch/watchJob.js';
 
@@ -33,7 +33,7 @@ helpIfAsked(import.meta.url);
 const { values, positionals } = parseArgs({
   allowPositionals: true,
   options: {
-    seeds: { type: 'string', default: '20' },
+    seeds: { type: 'string', default: String(WATCH_SEEDS) },
     tuning: { type: 'boolean', default: false },
     only: { type: 'string' },
     workers: { type: 'string', default: '2' },

@@ -20,6 +20,8 @@ import type { WatchAnswer } from './worker.js';
 
 /** Seeds from here on are kept for judging; 1, 2, ... are for building. */
 export const WATCH_FROM = 30_000;
+/** Plants with faults, and as many with healthy weeks, of a whole run. */
+export const WATCH_SEEDS = 20;
 
 /** What of the watch is scored. */
 export const PARTS = ['branches', 'weeks'] as const;
