@@ -92,9 +92,16 @@ export function resolveEstimator(unit: UnitBlock): EstimatorDefinition {
 const STALE_PERIODS = 5;
 
 export function resolveWatch(unit: UnitBlock): WatchDefinition {
-  const { data_age_s, ...same } = unit.watch;
+  const { data_age_s, indicators, ...same } = unit.watch;
+  const { in_control_days, baseline_from, ...rules } = indicators;
   return {
     ...same,
     data_age_s: { ...data_age_s, limit: data_age_s.limit ?? STALE_PERIODS * unit.scan_period_s },
+    indicators: {
+      in_control_d: in_control_days,
+      baseline_from_ms: baseline_from === undefined ? null : Date.parse(baseline_from),
+      // The width of the front has its own block: it is older than the others.
+      rules: { ...rules, spread_ratio: same.spread_ratio },
+    },
   };
 }

@@ -339,7 +339,21 @@ const CASES: readonly Case[] = [
     'demo',
     (u) => (u.watch = { spread_ratio: { limit: 1.3, deadband: 0.4 } }),
     'units[0].watch.spread_ratio.deadband',
-    /at most limit - 1 \(0\.3\)/,
+    /less than limit - 1 \(0\.3\)/,
+  ],
+  [
+    'an indicator whose alert could never return',
+    'demo',
+    (u) => (u.watch = { indicators: { string_flow: { limit: 0.05, deadband: 0.05 } } }),
+    'units[0].watch.indicators.string_flow.deadband',
+    /less than limit \(0\.05\)/,
+  ],
+  [
+    'a heat transfer that would have to be more than healthy to count so again',
+    'demo',
+    (u) => (u.watch = { indicators: { heat_transfer: { limit: 0.8, deadband: 0.2 } } }),
+    'units[0].watch.indicators.heat_transfer.deadband',
+    /less than limit is away from 1 \(0\.2\)/,
   ],
   [
     'standing that looks like running',

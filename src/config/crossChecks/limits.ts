@@ -1,6 +1,7 @@
 import type { Path } from '../faults.js';
 import type { UnitBlock } from '../schema/site.js';
 import { type CrossFault, cross } from './cross.js';
+import { watchFaults } from './watch.js';
 
 export function limitFaults(unit: UnitBlock, path: Path): CrossFault[] {
   const at: Path = [...path, 'limits'];
@@ -143,43 +144,4 @@ function standFaults(unit: UnitBlock, path: Path): CrossFault[] {
       ),
     ];
   });
-}
-
-function watchFaults(unit: UnitBlock, path: Path): CrossFault[] {
-  const at: Path = [...path, 'watch'];
-  const { spread_ratio, data_age_s } = unit.watch;
-  const faults: CrossFault[] = [];
-  if (spread_ratio.limit - spread_ratio.deadband < 1) {
-    faults.push(
-      cross(
-        [...at, 'spread_ratio', 'deadband'],
-        spread_ratio.deadband,
-        `at most limit - 1 (${Number((spread_ratio.limit - 1).toFixed(3))}): a healthy front has a ratio of 1 and must let the alert return`,
-        { others: [[...at, 'spread_ratio', 'limit']] },
-      ),
-    );
-  }
-  if (data_age_s.limit !== undefined) {
-    const limit: Path = [...at, 'data_age_s', 'limit'];
-    if (data_age_s.limit <= unit.scan_period_s) {
-      faults.push(
-        cross(limit, data_age_s.limit, `more than the scan period (${unit.scan_period_s} s)`, {
-          others: [[...path, 'scan_period_s']],
-        }),
-      );
-    }
-    if (data_age_s.deadband >= data_age_s.limit) {
-      faults.push(
-        cross(
-          [...at, 'data_age_s', 'deadband'],
-          data_age_s.deadband,
-          `less than limit (${data_age_s.limit})`,
-          {
-            others: [limit],
-          },
-        ),
-      );
-    }
-  }
-  return faults;
 }

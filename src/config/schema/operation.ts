@@ -1,5 +1,5 @@
 import { z } from 'zod';
-import { key, positive, section, share, temperature_degC } from './key.js';
+import { key, positive, section, temperature_degC } from './key.js';
 import { tradeLimits } from './trade.js';
 
 const direction = z.strictObject({
@@ -94,89 +94,5 @@ export const estimatorSchema = z.strictObject({
   ).optional(),
 });
 
-const delays = (on_s: number, off_s: number) => ({
-  on_delay_s: key(
-    z.number().min(0).max(86400),
-    's',
-    'How long the condition must last before it is raised.',
-    on_s,
-  ).default(on_s),
-  off_delay_s: key(
-    z.number().min(0).max(86400),
-    's',
-    'How long it must be gone before it returns.',
-    off_s,
-  ).default(off_s),
-});
-
-/** Limits of alarms and alerts. */
-export const watchSchema = z.strictObject({
-  spread_ratio: section(
-    z
-      .strictObject({
-        limit: key(
-          z.number().min(1).max(20),
-          '-',
-          'Alert where the front is this many times wider than a healthy bed would show.',
-          1.3,
-        ).default(1.3),
-        deadband: key(share(), '-', 'It returns this far below the limit.', 0.1).default(0.1),
-        ...delays(900, 1800),
-      })
-      .prefault({}),
-    'A front that is wider than it should be.',
-  ),
-  outlet_margin_K: section(
-    z
-      .strictObject({
-        limit: key(
-          z.number().min(0).max(500),
-          'K',
-          'Alarm where an outlet is this close to the limit that stops the discharge.',
-          15,
-        ).default(15),
-        deadband: key(
-          z.number().min(0).max(200),
-          'K',
-          'It returns this far beyond the limit.',
-          5,
-        ).default(5),
-        ...delays(60, 120),
-      })
-      .prefault({}),
-    'An outlet close to its stop limit.',
-  ),
-  data_age_s: section(
-    z
-      .strictObject({
-        limit: key(
-          positive(86400),
-          's',
-          'Alarm where the newest reading is older.',
-          150,
-          'five scan periods',
-        ).optional(),
-        deadband: key(
-          z.number().min(0).max(86400),
-          's',
-          'It returns this far below the limit.',
-          30,
-        ).default(0),
-        ...delays(0, 0),
-      })
-      .prefault({}),
-    'Readings that no longer come.',
-  ),
-  sensor_rejected: section(
-    z.strictObject(delays(300, 900)).prefault({}),
-    'A sensor that is not believed.',
-  ),
-  database_down: section(
-    z.strictObject(delays(60, 60)).prefault({}),
-    'A time-series database that does not answer.',
-  ),
-});
-
 export type LimitsBlock = z.output<typeof limitsSchema>;
 export type EstimatorBlock = z.output<typeof estimatorSchema>;
-export type WatchBlock = z.output<typeof watchSchema>;

@@ -27,15 +27,19 @@ export interface FollowState {
   time_ms: number | null;
 }
 
+/** Signed distances from healthy: at which the plant counts as degraded, and as healthy again, of the same sign. */
+export interface FollowLimit {
+  readonly degraded: number;
+  readonly back: number;
+}
+
 export interface FollowRule {
   /** Healthy as configured, and how far a healthy plant may be from that (one sigma). */
   readonly configured: { readonly value: number; readonly sigma: number };
   readonly baseline: BaselineRule;
   readonly from_ms: number | null;
-  /** Signed distances from healthy at which the plant counts as degraded: one or two. */
-  readonly limits: readonly number[];
-  /** How far back from a limit counts as healthy again; below the smallest limit's size. */
-  readonly deadband: number;
+  /** One or two, for the sides on which it may leave. */
+  readonly limits: readonly FollowLimit[];
   /** Of the test, see decisionAt. */
   readonly decision: number;
 }
@@ -111,10 +115,8 @@ export function follow(
   const healthy = healthyOf(state, rule);
   rule.limits.forEach((limit, i) => {
     const test = state.tests[i] as SequentialState;
-    const way = Math.sign(limit);
-    const safe = healthy.value + way * SAFE * healthy.sigma;
-    const size = Math.abs(limit) - (test.degraded ? rule.deadband : 0);
-    const degraded = safe + way * size;
+    const safe = healthy.value + Math.sign(limit.degraded) * SAFE * healthy.sigma;
+    const degraded = safe + (test.degraded ? limit.back : limit.degraded);
     stepSequential(test, { ...news, healthy: safe, degraded }, rule.decision);
   });
   state.value = news.value;
@@ -130,7 +132,7 @@ export function follow(
  */
 function isKnown({ baseline: learned }: FollowState, rule: FollowRule, healthy: Healthy): boolean {
   if (learned.kept) return true;
-  const least = Math.min(...rule.limits.map(Math.abs));
+  const least = Math.min(...rule.limits.map(({ degraded }) => Math.abs(degraded)));
   return learned.count >= rule.baseline.least && SAFE * healthy.sigma <= least / 2;
 }
 
@@ -143,7 +145,7 @@ export function followed(state: FollowState, rule: FollowRule): Followed {
   const learning = !isKnown(state, rule, healthy);
   return {
     healthy,
-    degraded: at < 0 ? null : (rule.limits[at] as number),
+    degraded: at < 0 ? null : (rule.limits[at] as FollowLimit).degraded,
     score: known ? Math.max(...scores) : null,
     state: at >= 0 ? 'degraded' : !known || learning ? 'undetermined' : 'normal',
     reason: at >= 0 ? null : !known ? 'not_exercised' : learning ? 'learning' : null,

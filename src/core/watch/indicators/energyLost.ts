@@ -73,8 +73,7 @@ function followRule(rule: IndicatorRule, watching: IndicatorsDefinition): Follow
     configured: { value: 0, sigma: CONFIGURED_SIGMA },
     baseline: BASELINE,
     from_ms: watching.baseline_from_ms,
-    limits: [rule.limit],
-    deadband: rule.deadband,
+    limits: [{ degraded: rule.limit, back: rule.limit - rule.deadband }],
     decision: decisionAt(watching.in_control_d, CHARGE_EVERY_S),
   };
 }

@@ -17,7 +17,7 @@ import type {
   IndicatorView,
 } from '../indicator.js';
 import { decisionAt } from '../sequential.js';
-import { dayOf, healthyWords, percent, viewOf } from './view.js';
+import { bothSides, dayOf, healthyWords, percent, viewOf } from './view.js';
 
 interface RunSoFar {
   readonly direction: Direction;
@@ -107,8 +107,7 @@ function followRule(
     configured: { value: 0, sigma },
     baseline: BASELINE,
     from_ms: watching.baseline_from_ms,
-    limits: [Math.log1p(rule.limit), Math.log1p(-rule.limit)],
-    deadband: rule.deadband,
+    limits: bothSides(rule),
     decision: decisionAt(watching.in_control_d, RUN_EVERY_S),
   };
 }

@@ -80,8 +80,7 @@ function followRule(
     configured: { value: 0, sigma: Math.max(sigma, BASELINE.floor) },
     baseline: BASELINE,
     from_ms: watching.baseline_from_ms,
-    limits: [Math.log(rule.limit)],
-    deadband: Math.log((rule.limit + rule.deadband) / rule.limit),
+    limits: [{ degraded: Math.log(rule.limit), back: Math.log(rule.limit + rule.deadband) }],
     decision: decisionAt(watching.in_control_d, NEWS_EVERY_S),
   };
 }
@@ -119,7 +118,8 @@ function view(
   const healthy = scale * Math.exp(result.healthy.value);
   const value = scale * Math.exp(now.value);
   const ratio = (value / healthy).toFixed(2);
-  const sigma = ((value / healthy) * now.sigma).toFixed(2);
+  const open = Math.hypot(now.sigma, result.healthy.sigma);
+  const sigma = ((value / healthy) * open).toFixed(2);
   const is = `Store ${store.id}: gas and rock exchange ${ratio} +/- ${sigma} times the heat of a healthy bed`;
   const against = `(${healthyWords(state, result.healthy)}; limit ${rule.limit.toFixed(2)})`;
   const sentence = {

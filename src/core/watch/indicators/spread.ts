@@ -81,8 +81,7 @@ function followRule(
     configured: { value: 0, sigma },
     baseline: BASELINE,
     from_ms: watching.baseline_from_ms,
-    limits: [Math.log(rule.limit)],
-    deadband: Math.log(rule.limit / (rule.limit - rule.deadband)),
+    limits: [{ degraded: Math.log(rule.limit), back: Math.log(rule.limit - rule.deadband) }],
     decision: decisionAt(watching.in_control_d, VALUE_EVERY_S),
   };
 }

@@ -22,7 +22,7 @@ import {
   startNews,
   tubeFigures,
 } from './news.js';
-import { dayOf, healthyWords, percent, viewOf } from './view.js';
+import { bothSides, dayOf, healthyWords, percent, viewOf } from './view.js';
 
 interface StringFollow {
   readonly news: NewsState;
@@ -85,8 +85,7 @@ function followRule(rule: IndicatorRule, watching: IndicatorsDefinition): Follow
     configured: { value: 0, sigma: UNEVEN_SIGMA },
     baseline: BASELINE,
     from_ms: watching.baseline_from_ms,
-    limits: [Math.log1p(rule.limit), Math.log1p(-rule.limit)],
-    deadband: rule.deadband,
+    limits: bothSides(rule),
     decision: decisionAt(watching.in_control_d, NEWS_EVERY_S),
   };
 }

@@ -1,4 +1,4 @@
-import type { Followed, FollowState, Healthy } from '../follow.js';
+import type { Followed, FollowLimit, FollowState, Healthy } from '../follow.js';
 import type { HealthyFrom, IndicatorKind, IndicatorRule, IndicatorView } from '../indicator.js';
 
 /** What a view adds to the decision: figures in its own unit, and its sentence. */
@@ -47,6 +47,18 @@ export function healthyWords(state: FollowState, healthy: Healthy): string {
   return 'as configured';
 }
 
+/** Limits in ln of a share that may be too large or too small. */
+export function bothSides({
+  limit,
+  deadband,
+}: Pick<IndicatorRule, 'limit' | 'deadband'>): FollowLimit[] {
+  return [1, -1].map((way) => ({
+    degraded: Math.log1p(way * limit),
+    back: Math.log1p(way * (limit - deadband)),
+  }));
+}
+
+/** A deviation in ln as a person reads it. */
 export function percent(log: number): string {
   const value = 100 * Math.expm1(log);
   return `${value >= 0 ? '+' : ''}${value.toFixed(1)} %`;
