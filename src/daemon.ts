@@ -13,7 +13,7 @@ import type { UnitDefinition } from './core/definitions.js';
 import type { DispatchAnswer } from './core/estimate.js';
 import { limitedAnswers } from './core/plan/limitedBy.js';
 import { shortTable } from './core/plan/offerSummary.js';
-import type { WatchEvent } from './core/watch/event.js';
+import { AlarmPart, DEFAULT_ALARMS } from './daemon/alarmPart.js';
 import { type DaemonClock, SteadyClock, wallClock } from './daemon/clock.js';
 import { type Core, realCore } from './daemon/core.js';
 import { Counters } from './daemon/counters.js';
@@ -95,6 +95,7 @@ class RockhourDaemon implements Daemon {
   private readonly pipeline: Pipeline;
   private readonly intake: Intake;
   private readonly mqtt: MqttPart;
+  private readonly alarms: AlarmPart;
   private readonly database: DatabasePart | null;
   private readonly notify: NotifyPart;
   private readonly housekeeping: Housekeeping;
@@ -118,7 +119,8 @@ class RockhourDaemon implements Daemon {
     this.clock = clock;
     const { folder } = site.store;
     const journal = new Journal(join(folder, 'journal.sqlite'));
-    const history = new History(join(folder, 'history.sqlite'), site.store);
+    const alarmsConfig = site.alarms ?? DEFAULT_ALARMS;
+    const history = new History(join(folder, 'history.sqlite'), site.store, alarmsConfig);
     this.journal = journal;
     this.history = history;
     this.questions = new Questions(core, options.configPath);
@@ -132,7 +134,16 @@ class RockhourDaemon implements Daemon {
       steady: new SteadyClock(clock, 4 * poll_ms * clock.speed),
       checkpoint_every_ms: site.store.checkpoint_every_s * 1000,
       stepped: (runner, step) => this.stepped(runner, step),
-      event: (event) => this.tellEvent(event),
+      event: (event) => this.alarms.event(event),
+      alarmsMoved: (unit) => this.alarms.moved(unit),
+    });
+    this.alarms = new AlarmPart({
+      ...common,
+      ...{ config: alarmsConfig, units: site.units },
+      isUpToDate: () => this.pipeline.backlog === 0,
+      announce: (message) => this.mqtt.announcer.alarms(message),
+      raised: (event) => this.service.tell({ kind: 'event', unit: event.unit, event }),
+      changed: (unit) => this.service.tell({ kind: 'alarms', unit }),
     });
     this.intake = new Intake({
       units: site.units,
@@ -148,6 +159,9 @@ class RockhourDaemon implements Daemon {
     });
     this.mqtt = new MqttPart({
       ...{ config: site.mqtt, site: site.name, version, intake: this.intake, clock, log, notices },
+      counters,
+      units: [...this.runners.keys()],
+      command: (command, unit) => this.alarms.command(command, unit),
       connected: () => this.housekeeping.allowClosing(),
     });
     this.database = site.influx
@@ -155,14 +169,14 @@ class RockhourDaemon implements Daemon {
           ...common,
           config: site.influx,
           units: site.units,
-          event: (event) => this.tellEvent(event),
+          event: (event) => this.alarms.event(event),
         })
       : null;
     this.notify = new NotifyPart({
       ...common,
       config: site.notify ?? { webhooks: [] },
       site: site.name,
-      isTold: () => true,
+      isTold: (event) => this.alarms.isTold(event),
     });
     this.housekeeping = new Housekeeping({
       ...common,
@@ -190,7 +204,7 @@ class RockhourDaemon implements Daemon {
       questions: this.questions,
       kept: (unit, table) => this.sayOffers(unit, table),
       health: () => this.health(),
-      acknowledged: (unit) => this.tellStanding(unit, null),
+      alarms: this.alarms,
     });
   }
 
@@ -244,6 +258,10 @@ class RockhourDaemon implements Daemon {
     await this.begin(
       () => this.replay(),
       () => pipeline.stop(),
+    );
+    await this.begin(
+      () => this.alarms.start(),
+      () => this.alarms.stop(),
     );
     const url = this.options.http === false ? null : await this.startHttp();
     if (database) {
@@ -312,7 +330,6 @@ class RockhourDaemon implements Daemon {
       if (view.dispatch) this.sayHours(unit, view.dispatch.time, view.dispatch.answers);
       const table = this.service.newestKept(id);
       if (table) this.sayOffers(id, table);
-      this.tellStanding(id, null);
     }
   }
 
@@ -334,20 +351,6 @@ class RockhourDaemon implements Daemon {
   private sayOffers(unit: string, { no, asked_ms, answer }: KeptTable): void {
     const asked = new Date(asked_ms).toISOString();
     this.mqtt.announcer.offers({ ...shortTable(answer), unit, no, asked });
-  }
-
-  private tellEvent(event: WatchEvent): void {
-    this.counters.add('events');
-    const { id: event_id, transition, priority } = event;
-    this.log.info({ event: event_id, transition, priority }, event.message);
-    this.tellStanding(event.unit, event);
-    this.service.tell({ kind: 'event', unit: event.unit, event });
-  }
-
-  private tellStanding(unit: string, last: WatchEvent | null): void {
-    const time = last?.time ?? new Date(this.clock.now()).toISOString();
-    const standing = this.history.events.standing(unit);
-    this.mqtt.announcer.alarms({ time, unit, standing, last });
   }
 
   private health(): HealthPart[] {

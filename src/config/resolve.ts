@@ -17,7 +17,7 @@ import type { ChannelSource, SiteConfig, WebhookConfig } from './site.js';
 
 /** A sound site block becomes SI units and kelvin; every conversion of the file happens here. */
 export function resolveSite(site: SiteBlock, baseFolder: string, secrets: Secrets): SiteConfig {
-  const { mqtt, influx, notify, store, http } = site;
+  const { mqtt, influx, alarms, notify, store, http } = site;
   return {
     name: site.name,
     units: site.units.map(resolveUnit),
@@ -45,6 +45,7 @@ export function resolveSite(site: SiteBlock, baseFolder: string, secrets: Secret
             password: secrets.influx,
             batch_points: influx.batch_points,
           },
+    alarms,
     notify: { webhooks: notify.webhooks.map((webhook) => resolveWebhook(webhook, secrets)) },
     store: { ...store, folder: resolvePath(baseFolder, store.folder) },
     http,

@@ -1,4 +1,5 @@
 import type { UnitDefinition } from '../core/definitions.js';
+import type { EventKind } from '../core/watch/event.js';
 
 /** Where the readings of a channel come from. */
 export interface ChannelSource {
@@ -62,6 +63,16 @@ export interface WebhookConfig {
   readonly oldest_h: number;
 }
 
+/** What may be done to alarms and alerts. */
+export interface AlarmsConfig {
+  /** Longest time on the shelf [h]. */
+  readonly shelve_most_h: number;
+  /** Kinds, `KIND/SUBJECT` or whole ids that are out of service. */
+  readonly out_of_service: readonly string[];
+  /** Kinds that stay until they are reset. */
+  readonly latching: readonly EventKind[];
+}
+
 export interface NotifyConfig {
   readonly webhooks: readonly WebhookConfig[];
 }
@@ -80,6 +91,8 @@ export interface SiteConfig {
   readonly clock_tolerance_s?: number;
   readonly mqtt: MqttConfig;
   readonly influx: InfluxConfig | null;
+  /** Absent: shelved for 8 h at most, all in service, none latching. */
+  readonly alarms?: AlarmsConfig;
   /** Absent: nobody else is told. */
   readonly notify?: NotifyConfig;
   readonly store: StoreConfig;

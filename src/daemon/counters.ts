@@ -26,6 +26,12 @@ const OWN_COUNTS = [
   'mode_disagreements',
   'history_failures',
   'events',
+  /** Commands about alarms, over HTTP and MQTT: followed, refused; those that were no JSON. */
+  'alarm_commands',
+  'alarm_commands_refused',
+  'alarm_commands_malformed',
+  /** Answers to such commands that could not be sent. */
+  'alarm_answers_lost',
   /** Journal entries of a unit or channel that is no longer configured. */
   'unconfigured',
   'questions',

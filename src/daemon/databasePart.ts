@@ -57,9 +57,7 @@ export class DatabasePart {
 
   start(): void {
     const { units, history, clock } = this.options;
-    const stands = history.events.standing().flatMap(({ id, state }) => {
-      return state === 'returned_unacknowledged' ? [] : [id];
-    });
+    const stands = history.alarms.active().map(({ id }) => id);
     this.watch = new DatabaseWatch(units, new Set(stands));
     this.forwarder.start();
     this.timer = setInterval(() => this.look(), LOOK_EVERY_MS / Math.max(1, clock.speed));

@@ -1,3 +1,5 @@
+import type { AlarmAnswer } from '../adapters/http/service.js';
+import { AlarmCommands } from '../adapters/mqtt/alarmCommands.js';
 import { Announcer } from '../adapters/mqtt/announcer.js';
 import { EmbeddedBroker } from '../adapters/mqtt/broker.js';
 import type { Intake } from '../adapters/mqtt/intake.js';
@@ -6,6 +8,7 @@ import type { MqttConfig } from '../config/site.js';
 import { withoutCredentials } from '../errors.js';
 import type { Log } from '../log.js';
 import type { DaemonClock } from './clock.js';
+import type { Counters } from './counters.js';
 import type { Notices } from './notices.js';
 
 /** A start waits this long for the broker's first word; one that is away does not hold it up [ms]. */
@@ -19,6 +22,11 @@ export interface MqttPartOptions {
   readonly clock: DaemonClock;
   readonly log: Log;
   readonly notices: Notices;
+  readonly counters: Counters;
+  /** Ids of the units. */
+  readonly units: readonly string[];
+  /** Follows a command about an alarm of a unit. */
+  command(command: unknown, unit: string): AlarmAnswer;
   /** The broker can be reached, at the start and after each outage. */
   connected(): void;
 }
@@ -28,6 +36,7 @@ export class MqttPart {
   readonly announcer: Announcer;
   private readonly link: MqttLink;
   private readonly broker: EmbeddedBroker | null;
+  private readonly commands: AlarmCommands;
   private refusal: string | null = null;
   private lost: string | null = null;
   /** The broker has been reached, or could not be. */
@@ -37,6 +46,22 @@ export class MqttPart {
     const { config, intake } = options;
     const { embedded_host, embedded_port, url } = config;
     this.broker = url === null ? new EmbeddedBroker(embedded_host, embedded_port) : null;
+    this.commands = new AlarmCommands({
+      ...{ prefix: config.out_prefix, units: options.units },
+      now: () => options.clock.now(),
+      follow: (command, unit) => {
+        const answer = options.command(command, unit);
+        return answer.accepted
+          ? { accepted: true, state: answer.entry?.state ?? 'normal' }
+          : { accepted: false, fault: answer.fault };
+      },
+      answer: (topic, payload) => this.link.tell(topic, payload),
+      malformed: (text) => {
+        options.counters.add('alarm_commands_malformed');
+        options.notices.warn('alarm_commands_malformed', text);
+      },
+      lost: () => options.counters.add('alarm_answers_lost'),
+    });
     this.link = new MqttLink({
       // Asked for at the start: the port of an embedded broker is known only then.
       url: () => this.url,
@@ -46,9 +71,11 @@ export class MqttPart {
       // The embedded broker speaks 3.1.1 only.
       protocol: this.broker ? 4 : config.protocol,
       qos: config.qos,
-      topics: intake.topics,
+      topics: [...intake.topics, ...this.commands.topics],
       will: Announcer.will(config.out_prefix),
-      receive: (delivery) => intake.receive(delivery),
+      receive: (delivery) => {
+        if (!this.commands.receive(delivery)) intake.receive(delivery);
+      },
       up: () => this.up(),
       down: (reason) => {
         this.lost = reason;

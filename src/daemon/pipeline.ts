@@ -30,6 +30,8 @@ export interface PipelineOptions {
   stepped(runner: UnitRunner, step: RunnerStep): void;
   /** An event that is new. */
   event(event: WatchEvent): void;
+  /** Alarms of a unit have changed without an event: a rule, or the time. */
+  alarmsMoved(unit: string): void;
 }
 
 /**
@@ -205,24 +207,28 @@ export class Pipeline {
   }
 
   private enter(runner: UnitRunner, step: RunnerStep): void {
-    const { history, stepped, event } = this.options;
+    const { history, stepped, event, alarmsMoved } = this.options;
     const { estimate, profile, events } = step.step;
+    const time_ms = Date.parse(estimate.time);
     try {
       const news = history.write(() => {
         const isNew = history.estimates.add(runner.unit, estimate, step.measured);
         if (profile) history.estimates.addProfile(profile);
-        return { isNew, events: events.filter((one) => history.events.add(one)) };
+        // A scan that is known, as in a replay after a restart, has moved its alarms already.
+        const moved = isNew && history.alarms.scan(runner.unit.id, estimate.mode, time_ms);
+        return { isNew, moved, events: events.filter((one) => history.events.add(one)) };
       });
       this.storeTrouble = null;
       if (news.isNew) stepped(runner, step);
       for (const one of news.events) event(one);
+      if (news.moved) alarmsMoved(runner.unit.id);
     } catch (thrown) {
       // What cannot be stored is said all the same.
       this.storeFailed('history_failures', thrown);
       stepped(runner, step);
       for (const one of events) event(one);
     }
-    this.checkpointIfDue(runner, Date.parse(estimate.time));
+    this.checkpointIfDue(runner, time_ms);
   }
 
   private checkpointIfDue(runner: UnitRunner, time_ms: number): void {

@@ -1,12 +1,14 @@
 import type { History } from '../adapters/history/history.js';
 import type {
+  AlarmAnswer,
   HealthPart,
   HistoryPoint,
   PlantService,
   ServiceMessage,
-  StandingEvent,
   UnitNow,
 } from '../adapters/http/service.js';
+import type { AlarmEntry, RecordedTransition } from '../core/alarm/entry.js';
+import type { AlarmReport } from '../core/alarm/report.js';
 import type { DispatchAnswer } from '../core/estimate.js';
 import type { PlanAnswer, PlanQuestion } from '../core/plan/ask.js';
 import type { OffersAsk } from '../core/plan/offerAsk.js';
@@ -15,6 +17,7 @@ import type { KeptOffers } from '../core/plan/offerSummary.js';
 import type { AnsweredOffers } from '../core/plan/offerTable.js';
 import type { WatchEvent } from '../core/watch/event.js';
 import type { UnitWorth } from '../core/worth/unitWorth.js';
+import type { AlarmPart } from './alarmPart.js';
 import type { DaemonClock } from './clock.js';
 import type { Counters } from './counters.js';
 import { reportOffers } from './offerReports.js';
@@ -35,15 +38,14 @@ export interface PlantServiceParts {
   readonly history: History;
   readonly questions: Questions;
   readonly counters: Counters;
+  readonly alarms: AlarmPart;
   readonly clock: DaemonClock;
   health(): HealthPart[];
   /** An offer table has been kept. */
   kept(unit: string, table: KeptTable): void;
-  /** What stands has changed by an acknowledgement. */
-  acknowledged(unit: string): void;
 }
 
-/** What the daemon offers to pages and programs; it reads, but for acknowledgements. */
+/** What the daemon offers to pages and programs; it reads, but for what is done to alarms. */
 export class DaemonService implements PlantService {
   private readonly listeners = new Set<(message: ServiceMessage) => void>();
 
@@ -139,20 +141,30 @@ export class DaemonService implements PlantService {
     return this.parts.history.estimates.names(this.runner(unit).unit);
   }
 
-  standing(unit?: string): StandingEvent[] {
-    return this.parts.history.events.standing(unit);
+  standing(unit?: string): AlarmEntry[] {
+    return this.parts.alarms.shown(unit);
+  }
+
+  heldBack(unit?: string): AlarmEntry[] {
+    return this.parts.alarms.heldBack(unit);
   }
 
   events(unit: string | undefined, from_ms: number, to_ms: number, most: number): WatchEvent[] {
     return this.parts.history.events.between(unit, from_ms, to_ms, most);
   }
 
-  acknowledge(id: string, who: string): boolean {
-    const { history, clock } = this.parts;
-    const stands = history.events.standing().find((event) => event.id === id);
-    if (!stands || !history.events.acknowledge(id, who, Math.floor(clock.now()))) return false;
-    this.parts.acknowledged(stands.unit);
-    return true;
+  commandAlarm(command: unknown): AlarmAnswer {
+    return this.parts.alarms.command(command);
+  }
+
+  alarmReport(unit: string | undefined, from_ms: number, to_ms: number): AlarmReport {
+    return this.parts.alarms.report(unit, from_ms, to_ms);
+  }
+
+  alarmTransitions(
+    ...[of, from_ms, to_ms, most]: Parameters<PlantService['alarmTransitions']>
+  ): RecordedTransition[] {
+    return this.parts.history.alarms.transitions(of, from_ms, to_ms, most);
   }
 
   health(): HealthPart[] {

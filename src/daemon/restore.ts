@@ -48,8 +48,8 @@ export function restoreRunner(runner: UnitRunner, parts: RestoreParts): void {
 /** What stood under the old state would stand for ever: the new one never raised it. */
 function returnOrphans(unit: string, { history, clock }: RestoreParts): void {
   const time = new Date(clock.now()).toISOString();
-  for (const { state, acknowledged_by: _, ...event } of history.events.standing(unit)) {
-    if (state === 'returned_unacknowledged' || event.kind === 'database_unreachable') continue;
+  for (const event of history.alarms.active(unit)) {
+    if (event.kind === 'database_unreachable') continue;
     const message = 'The estimator was started afresh; raised again where it still holds.';
     history.events.add({ ...event, transition: 'returned', time, message });
   }

@@ -147,7 +147,8 @@ describe.skipIf(!mosquitto)('a running daemon', () => {
     }
     expect(headroom.limits).toEqual(now.definition.limits);
     const alarms = of(topics[1]!) as { standing: { id: string }[] };
-    expect(Object.keys(alarms).sort()).toEqual(['last', 'standing', 'time', 'unit']);
+    const keys = ['counts', 'last', 'left_out', 'standing', 'suppressed', 'time', 'unit'];
+    expect(Object.keys(alarms).sort()).toEqual(keys);
     expect(alarms.standing.map(({ id }) => id)).toContain(ALERT);
     const beat = z
       .strictObject({
@@ -218,6 +219,8 @@ describe.skipIf(!mosquitto)('a running daemon', () => {
       '/api/units/{unit}/history': ['', '?points=5', '?series=state_of_charge', '?format=csv'],
       '/api/alarms': ['', '?unit=vellmoor'],
       '/api/events': ['', '?unit=vellmoor&most=3'],
+      '/api/alarms/transitions': ['', '?unit=vellmoor&most=3'],
+      '/api/alarms/figures': ['', '?unit=vellmoor'],
     };
     const later = (hours: number) => new Date(Date.now() + hours * 3.6e6).toISOString();
     const block = () => ({ mode: 'discharge', power_MW_el: 1, from: later(1), to: later(2) });
@@ -258,7 +261,10 @@ describe.skipIf(!mosquitto)('a running daemon', () => {
       const posts = operations(document).filter(
         ([path, way]) => way === 'post' && !(path in POSTED),
       );
-      expect(posts.map(([path]) => path)).toEqual(['/api/alarms/acknowledge']);
+      // Those about alarms are asked below.
+      expect(posts.map(([path]) => path).filter((path) => !/^\/api\/alarms\//.test(path))).toEqual(
+        [],
+      );
       for (const [path, contents] of Object.entries(POSTED)) {
         for (const [i, content] of contents().entries()) {
           const answer = await fetch(`${page}${path.replace('{unit}', 'vellmoor')}`, {
@@ -295,9 +301,10 @@ describe.skipIf(!mosquitto)('a running daemon', () => {
     });
 
     it('describes what acknowledges an alert, and the stream', async () => {
-      const { post } = document.paths['/api/alarms/acknowledge']!;
-      const say = async (content: object) => {
-        const answer = await fetch(`${page}/api/alarms/acknowledge`, {
+      const say = async (content: object, action = 'acknowledge') => {
+        const path = `/api/alarms/${action}`;
+        const { post } = document.paths[path]!;
+        const answer = await fetch(`${page}${path}`, {
           method: 'POST',
           headers: { 'content-type': 'application/json' },
           body: JSON.stringify(content),
@@ -311,6 +318,18 @@ describe.skipIf(!mosquitto)('a running daemon', () => {
         acknowledged_by: 'night shift',
         standing: { id: ALERT, state: 'acknowledged' },
       });
+      const why = { id: ALERT, who: 'day shift', why: 'being mended' };
+      const steps = [
+        ['shelve', { ...why, hours: 2 }, 'shelved'],
+        ['unshelve', { id: ALERT, who: 'day shift' }, 'unacknowledged'],
+        ['out-of-service', why, 'out_of_service'],
+        ['return-to-service', why, 'unacknowledged'],
+      ] as const;
+      for (const [action, content, state] of steps) {
+        expect((await say(content, action)).body).toMatchObject({ id: ALERT, state });
+      }
+      expect((await say({ id: ALERT, who: 'x' }, 'reset')).status).toBe(409);
+      expect((await say({ ...why, hours: 9 }, 'shelve')).status).toBe(400);
       expect((await say({ id: 'vellmoor/none', who: 'x' })).status).toBe(404);
       expect((await say({ who: 'x' })).status).toBe(400);
       const stream = document.paths['/api/stream']!.get!.responses['200']!;

@@ -159,8 +159,10 @@ describe.skipIf(!mosquitto)('a daemon at a real broker', () => {
     await counted(daemon, 'scans_empty', 4);
     expect(told).toEqual(['raised']);
     expect(daemon.service.standing()).toMatchObject([{ state: 'unacknowledged' }]);
-    expect(daemon.service.acknowledge('u/data_stale/unit', 'operator')).toBe(true);
-    expect(daemon.service.acknowledge('u/nothing/unit', 'operator')).toBe(false);
+    const acknowledge = (id: string) =>
+      daemon.service.commandAlarm({ id, action: 'acknowledge', who: 'operator' }).accepted;
+    expect(acknowledge('u/data_stale/unit')).toBe(true);
+    expect(acknowledge('u/nothing/unit')).toBe(false);
     await daemon.stop();
     const before = storedEstimates(site);
 

@@ -2,6 +2,7 @@ import { join } from 'node:path';
 import SQLite from 'better-sqlite3';
 import { describe, expect, it } from 'vitest';
 import type { SiteConfig } from '../../src/config/site.js';
+import { NORMAL } from '../../src/core/alarm/state.js';
 import type { UnitDefinition } from '../../src/core/definitions.js';
 import { fastClock } from '../../src/daemon.js';
 import { waitFor } from '../support/wait.js';
@@ -58,7 +59,7 @@ describe('a daemon that was killed', () => {
     change(
       site,
       `DELETE FROM checkpoints WHERE time = ${LAST};
-       DELETE FROM estimates WHERE time > ${LAST}; DELETE FROM events; DELETE FROM standing;`,
+       DELETE FROM estimates WHERE time > ${LAST}; DELETE FROM events; DELETE FROM alarms;`,
     );
     const left = storedEstimates(site).length;
     expect(left).toBeGreaterThan(60);
@@ -93,13 +94,15 @@ describe('a daemon that was killed', () => {
 
   it('with another definition of its unit starts afresh, says that old alarms are void, and goes on', async () => {
     const site = await worked();
-    const standing = `'u/data_stale/unit', 'u', 'unacknowledged', NULL`;
+    const { id, state } = { id: 'u/data_stale/unit', state: 'unacknowledged' };
+    const alarm = JSON.stringify({ ...NORMAL, state, active: true, raised_ms: START });
+    const standing = `'${id}', 'u', 'data_stale', '${state}', NULL, '${alarm}'`;
     const event = {
       ...{ id: 'u/data_stale/unit', unit: 'u', kind: 'data_stale', class: 'alert' },
       ...{ priority: 'high', subject: 'unit', transition: 'raised', message: 'no data' },
       ...{ time: new Date(START).toISOString(), value: null, limit: null },
     };
-    change(site, `INSERT INTO standing VALUES (${standing}, '${JSON.stringify(event)}')`);
+    change(site, `INSERT INTO alarms VALUES (${standing}, '${JSON.stringify(event)}')`);
     const [unit] = site.units;
     const changed = { ...unit, hours_at_W: [2e6] } as UnitDefinition;
     const daemon = makeDaemon({ ...site, units: [changed] });

@@ -1,4 +1,5 @@
 import type { StoreConfig } from '../../config/site.js';
+import { type AlarmRules, Alarms } from './alarms.js';
 import { Checkpoints } from './checkpoints.js';
 import { type Database, openDatabase, storeFailure } from './database.js';
 import { Estimates } from './estimates.js';
@@ -12,14 +13,15 @@ import { Sequence } from './sequence.js';
 
 /**
  * The local history: one SQLite file with estimates, dispatch answers, offers, profiles, events,
- * what stands, checkpoints and the forwarder's cursor. A power cut may undo the last moments of it,
- * checkpoints included, as a whole: the journal, which is synced, makes them again.
+ * alarms with every transition, checkpoints and the forwarder's cursor. A power cut may undo the last
+ * moments of it, checkpoints included, as a whole: the journal, which is synced, makes them again.
  */
 export class History {
   private opened: {
     readonly database: Database;
     readonly estimates: Estimates;
     readonly events: Events;
+    readonly alarms: Alarms;
     readonly checkpoints: Checkpoints;
     readonly outbox: Outbox;
     readonly offers: Offers;
@@ -29,6 +31,7 @@ export class History {
   constructor(
     private readonly file: string,
     private readonly store: StoreConfig,
+    private readonly rules: AlarmRules = { latching: [], out_of_service: [] },
   ) {}
 
   /** @throws RockhourError STORE_FAILED */
@@ -36,10 +39,12 @@ export class History {
     if (this.opened) return;
     const database = openDatabase(this.file, 'normal', HISTORY_SCHEMA);
     const sequence = new Sequence(database);
+    const alarms = new Alarms(database, this.rules);
     this.opened = {
       database,
       estimates: new Estimates(database, sequence),
-      events: new Events(database, sequence),
+      events: new Events(database, sequence, alarms),
+      alarms,
       checkpoints: new Checkpoints(database),
       outbox: new Outbox(database),
       offers: new Offers(database),
@@ -57,6 +62,9 @@ export class History {
   }
   get events(): Events {
     return this.parts.events;
+  }
+  get alarms(): Alarms {
+    return this.parts.alarms;
   }
   get checkpoints(): Checkpoints {
     return this.parts.checkpoints;

@@ -39,6 +39,7 @@ export function applyRetention(
     for (const table of ['dispatch', 'profiles']) remove(database, table, end);
     const offers = remove(database, 'offers', end) + removeSurplusOffers(database);
     const events = remove(database, 'events', end);
+    remove(database, 'alarm_transitions', end);
     estimates += thinEstimates(database, store, now_ms, limit);
     return { estimates, events, offers, not_forwarded };
   })();

@@ -33,4 +33,42 @@ export const HISTORY_SCHEMA = [
    CREATE INDEX offers_by_unit ON offers (unit, asked);
    CREATE TRIGGER offers_stay BEFORE UPDATE ON offers
      BEGIN SELECT RAISE(ABORT, 'offers are never rewritten'); END;`,
+  // Alarms with their states and every transition; what stood and was acknowledged before goes along.
+  // A step is never changed, hence the state is written out here as it was then.
+  `CREATE TABLE alarms (
+     id TEXT PRIMARY KEY, unit TEXT NOT NULL, kind TEXT NOT NULL, state TEXT NOT NULL,
+     until INTEGER, alarm TEXT NOT NULL, event TEXT) WITHOUT ROWID;
+   CREATE INDEX alarms_by_unit ON alarms (unit, kind);
+   CREATE INDEX alarms_by_until ON alarms (until) WHERE until IS NOT NULL;
+   CREATE TABLE alarm_transitions (
+     no INTEGER PRIMARY KEY, id TEXT NOT NULL, unit TEXT NOT NULL, kind TEXT NOT NULL,
+     time INTEGER NOT NULL, what TEXT NOT NULL, before TEXT, after TEXT, who TEXT,
+     why TEXT NOT NULL);
+   CREATE INDEX alarm_transitions_by_time ON alarm_transitions (time);
+   INSERT INTO alarms (id, unit, kind, state, until, alarm, event)
+     SELECT id, unit, json_extract(json, '$.kind'), state, NULL,
+       json_object('state', state,
+         'active', json(iif(state = 'returned_unacknowledged', 'false', 'true')),
+         'latched', json('false'), 'unseen', json('false'), 'suppressed', json('false'),
+         'raised_ms', time, 'since_ms', coalesce(said, time),
+         'acknowledged', iif(acknowledged_by IS NULL, NULL,
+           json_object('who', acknowledged_by, 'why', '', 'since_ms', coalesce(said, time))),
+         'shelf', NULL, 'service', NULL), json
+     FROM (SELECT *,
+       CAST(round((julianday(json_extract(json, '$.time')) - 2440587.5) * 86400000.0) AS INTEGER)
+         AS time,
+       (SELECT max(time) FROM acknowledgements WHERE acknowledgements.id = standing.id
+         AND standing.state = 'acknowledged') AS said
+       FROM standing);
+   INSERT INTO alarm_transitions (id, unit, kind, time, what, before, after, who, why)
+     SELECT id, unit, kind, time, what, NULL, after, who, '' FROM (
+       SELECT id, unit, json_extract(json, '$.kind') AS kind, time, transition AS what,
+         iif(transition = 'raised', 'unacknowledged', NULL) AS after, NULL AS who
+       FROM events UNION ALL
+       SELECT id, substr(id, 1, instr(id, '/') - 1),
+         substr(rest, 1, instr(rest, '/') - 1), time, 'acknowledged', NULL, who
+       FROM (SELECT *, substr(id, instr(id, '/') + 1) AS rest FROM acknowledgements))
+     ORDER BY time;
+   DROP TABLE standing;
+   DROP TABLE acknowledgements;`,
 ];

@@ -8,6 +8,7 @@ export const FAULT_CODES = [
   'unknown_unit',
   'unknown_series',
   'unknown_event',
+  'wrong_state',
   'unknown_offers',
   'unknown_route',
   'unreadable_body',

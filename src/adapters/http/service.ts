@@ -1,3 +1,6 @@
+import type { AlarmCommand, CommandFault } from '../../core/alarm/command.js';
+import type { AlarmEntry, RecordedTransition } from '../../core/alarm/entry.js';
+import type { AlarmReport } from '../../core/alarm/report.js';
 import type { UnitDefinition } from '../../core/definitions.js';
 import type { DispatchAnswer, Estimate, ProfileView } from '../../core/estimate.js';
 import type { PlanAnswer, PlanQuestion } from '../../core/plan/ask.js';
@@ -9,11 +12,10 @@ import type { ScanCounts } from '../../core/scanCounts.js';
 import type { WatchEvent } from '../../core/watch/event.js';
 import type { UnitWorth } from '../../core/worth/unitWorth.js';
 
-/** An alarm or alert that stands now, or has returned and is not yet acknowledged. */
-export interface StandingEvent extends Omit<WatchEvent, 'transition'> {
-  readonly state: 'unacknowledged' | 'acknowledged' | 'returned_unacknowledged';
-  readonly acknowledged_by: string | null;
-}
+/** What became of a command about an alarm; `entry` is null where it has left the list by it. */
+export type AlarmAnswer =
+  | { readonly accepted: true; readonly command: AlarmCommand; readonly entry: AlarmEntry | null }
+  | { readonly accepted: false; readonly fault: CommandFault };
 
 export interface UnitNow {
   readonly unit: UnitDefinition;
@@ -42,6 +44,8 @@ export interface HistoryPoint {
 
 export type ServiceMessage =
   | { readonly kind: 'state'; readonly unit: string }
+  /** The list of alarms is another one, without an event. */
+  | { readonly kind: 'alarms'; readonly unit: string }
   | { readonly kind: 'event'; readonly unit: string; readonly event: WatchEvent };
 
 /** What the daemon offers to the HTTP adapter; the adapter knows nothing else of the daemon. */
@@ -73,10 +77,20 @@ export interface PlantService {
   /** At most `points` rows per call, thinned evenly on the server; series names as documented. */
   history(unit: string, from_ms: number, to_ms: number, points: number): HistoryPoint[];
   historySeries(unit: string): string[];
-  standing(unit?: string): StandingEvent[];
+  /** Alarms and alerts that are shown, and those held back: shelved, suppressed, out of service. */
+  standing(unit?: string): AlarmEntry[];
+  heldBack(unit?: string): AlarmEntry[];
   events(unit: string | undefined, from_ms: number, to_ms: number, most: number): WatchEvent[];
-  /** false where no such event stands. */
-  acknowledge(id: string, who: string): boolean;
+  /** Follows a command about an alarm, as it came, or says what is wrong with it. */
+  commandAlarm(command: unknown): AlarmAnswer;
+  alarmReport(unit: string | undefined, from_ms: number, to_ms: number): AlarmReport;
+  /** Newest first. */
+  alarmTransitions(
+    of: { readonly unit?: string | undefined; readonly id?: string | undefined },
+    from_ms: number,
+    to_ms: number,
+    most: number,
+  ): RecordedTransition[];
   health(): HealthPart[];
   /** Counters by name: messages in, malformed, late, repeated, ... */
   counters(): Record<string, number>;

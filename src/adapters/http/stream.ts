@@ -1,4 +1,5 @@
 import { randomBytes } from 'node:crypto';
+import type { WatchEvent } from '../../core/watch/event.js';
 import type { JsonWriter } from './json.js';
 import type { PlantService, ServiceMessage } from './service.js';
 import { StreamClient, type StreamSink } from './stream-client.js';
@@ -15,8 +16,9 @@ interface KeptEvent {
  *
  *     hello  first of every connection: site, version, units, heartbeat, and whether it resumes
  *     state  the newest state of a unit; newer ones replace those that a client has not yet got
- *     event  an alarm or alert raised or returned; every one of them, in order
- *     alarms something was acknowledged: ask /api/alarms again
+ *     event  an alarm or alert raised or returned; every one of them, in order, but in a storm
+ *     alarms the list is another one, by a person, a rule or the time: ask /api/alarms again;
+ *            `left_out` events of a storm were not sent one by one (/api/events has them)
  *     beat   a sign of life with the age of each unit's readings
  *
  * Only `hello` and `event` carry an id, `${run}-${sequence}`: the run is drawn anew at each start,
@@ -34,6 +36,13 @@ export class LiveStream {
   private beatTimer: NodeJS.Timeout | null = null;
   private unsubscribe: (() => void) | null = null;
   private lastFlush_ms = Number.NEGATIVE_INFINITY;
+  /** The list of alarms has changed without an event since the last flush. */
+  private listChanged = false;
+  /** Events since then that were not sent one by one. */
+  private leftOut = 0;
+  /** Events sent in the second that began then. */
+  private sent = 0;
+  private second_ms = Number.NEGATIVE_INFINITY;
   /** Streams ended because the client did not take what was sent. */
   slowEnded = 0;
 
@@ -91,12 +100,6 @@ export class LiveStream {
     client.push('beat', this.beatText());
   }
 
-  /** Tells every client that the list of what stands is another one, without an event. */
-  standingChanged(): void {
-    const text = message('alarms', '{}', null);
-    for (const client of this.clients) client.push('alarms', text);
-  }
-
   /** Kept events after `lastId`; null where it cannot be told which were missed. */
   private missedSince(lastId: string | null): KeptEvent[] | null {
     if (lastId === null) return [];
@@ -110,17 +113,38 @@ export class LiveStream {
   }
 
   private take(news: ServiceMessage): void {
-    if (news.kind === 'event') {
-      this.sequence += 1;
-      const { sequence } = this;
-      const text = message('event', this.json.write(news.event), this.idOf(sequence));
-      this.kept.push({ sequence, text });
-      if (this.kept.length > this.tuning.events_kept) this.kept.shift();
-      for (const client of this.clients) client.push(`event ${sequence}`, text);
+    if (news.kind === 'event') this.takeEvent(news.event);
+    else if (news.kind === 'alarms') this.listChanged = true;
+    else this.changed.add(news.unit);
+    this.flushSoon();
+  }
+
+  private takeEvent(event: WatchEvent): void {
+    this.sequence += 1;
+    const { sequence } = this;
+    const text = message('event', this.json.write(event), this.idOf(sequence));
+    this.kept.push({ sequence, text });
+    if (this.kept.length > this.tuning.events_kept) this.kept.shift();
+    if (this.sentOf(performance.now()) >= this.tuning.events_at_once) {
+      this.leftOut += 1;
       return;
     }
-    this.changed.add(news.unit);
+    this.sent += 1;
+    for (const client of this.clients) client.push(`event ${sequence}`, text);
+  }
+
+  /** Events sent in the present second. */
+  private sentOf(now_ms: number): number {
+    if (now_ms - this.second_ms >= 1000) {
+      this.second_ms = now_ms;
+      this.sent = 0;
+    }
+    return this.sent;
+  }
+
+  private flushSoon(): void {
     if (this.flushTimer !== null) return;
+    if (this.changed.size === 0 && !this.listChanged && this.leftOut === 0) return;
     const since = performance.now() - this.lastFlush_ms;
     const wait = Math.max(0, this.tuning.state_every_ms - since);
     this.flushTimer = setTimeout(() => this.flush(), wait);
@@ -131,6 +155,12 @@ export class LiveStream {
     this.lastFlush_ms = performance.now();
     for (const unit of this.changed) this.sendState(unit, this.clients);
     this.changed.clear();
+    if (!this.listChanged && this.leftOut === 0) return;
+    const news = this.leftOut === 0 ? {} : { left_out: this.leftOut };
+    this.listChanged = false;
+    this.leftOut = 0;
+    const text = message('alarms', this.json.write(news), null);
+    for (const client of this.clients) client.push('alarms', text);
   }
 
   /** One view and one text per kind of client, however many of them there are. */

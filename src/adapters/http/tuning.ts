@@ -8,6 +8,8 @@ export interface HttpTuning {
   readonly heartbeat_ms: number;
   /** Shortest time between two states of one unit on the stream [ms]. */
   readonly state_every_ms: number;
+  /** Events sent one by one in a second; of a storm the rest is told by number. */
+  readonly events_at_once: number;
   /** Events kept for a client that comes back with Last-Event-ID. */
   readonly events_kept: number;
   /** Messages that may wait for a slow client before its stream is ended. */
@@ -20,6 +22,7 @@ export const DEFAULT_TUNING: HttpTuning = {
   streams_most: 64,
   heartbeat_ms: 5_000,
   state_every_ms: 250,
+  events_at_once: 100,
   events_kept: 1_000,
   waiting_most: 200,
 };

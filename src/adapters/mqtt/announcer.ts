@@ -13,8 +13,15 @@ export interface Outlet {
 export interface AlarmsMessage {
   readonly time: string;
   readonly unit: string;
+  /** What is shown, the urgent first. */
   readonly standing: readonly object[];
   readonly last: WatchEvent | null;
+  /** What is held back: shelved, suppressed by design, out of service. */
+  readonly suppressed: readonly object[];
+  /** How many there are of each state. */
+  readonly counts: Readonly<Record<string, number>>;
+  /** Entries beyond the length of a message. */
+  readonly left_out: number;
 }
 
 /** What a unit can still take, with the head that every answer about what lies ahead has. */
@@ -55,7 +62,7 @@ export const HEARTBEAT_MS = 10_000;
  * - `PREFIX/UNIT/dispatch`  `{"time", "unit", "answers": [...]}`: the hours computed last
  * - `PREFIX/UNIT/headroom`  what the unit can still take at configured charging powers, see HeadroomMessage
  * - `PREFIX/UNIT/offers`    the offer table kept last without its blocks, with `no` and `asked`
- * - `PREFIX/UNIT/alarms`    `{"time", "unit", "standing": [...], "last": event or null}`
+ * - `PREFIX/UNIT/alarms`    see AlarmsMessage; `.../command` and `.../answer` are in alarmCommands
  * - `PREFIX/heartbeat`      `{"status": "online", "time", "site", "version", "uptime_s"}` every 10 s,
  *                           and `{"status": "offline"}` by the broker's last will or a clean stop
  *

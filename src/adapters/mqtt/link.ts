@@ -7,6 +7,8 @@ export interface Delivery {
   readonly payload: Buffer;
   /** The broker says that it may have sent it before. */
   readonly duplicate: boolean;
+  /** The broker had kept it for whoever subscribes; absent: it did not say so. */
+  readonly retained?: boolean;
   /**
    * Tells the broker that the message is safe; does nothing once the connection that it came by is
    * gone. null where the broker wants no acknowledgement (QoS 0).
@@ -41,6 +43,8 @@ const CONNECT_TIMEOUT_MS = 10_000;
 const KEEPALIVE_S = 15;
 /** Well below the 20 s within which a clean end must be through. */
 const END_MS = 1000;
+/** A broker that does not take them costs no more memory than this many messages. */
+const MOST_TELLING = 1000;
 
 /** A message handed on but not yet acknowledged: MQTT.js then sends no PUBACK of its own. */
 const LATER = new Error('acknowledged apart from the handler');
@@ -62,6 +66,8 @@ export class MqttLink {
   private connection = 0;
   private isUp = false;
   private isToldDown = false;
+  /** Messages by `tell` that the broker has not acknowledged. */
+  private telling = 0;
   /** Newest payload that waits per topic while an older one is on its way. */
   private readonly waiting = new Map<string, string | null>();
 
@@ -113,6 +119,19 @@ export class MqttLink {
     if (!this.isUp || !this.client) return false;
     if (this.waiting.has(topic)) this.waiting.set(topic, payload);
     else this.send(this.client, topic, payload);
+    return true;
+  }
+
+  /**
+   * Publishes a message that is not retained, at least once.
+   * @returns false where there is no connection, or too many such are on their way: it is not sent
+   */
+  tell(topic: string, payload: string): boolean {
+    if (!this.isUp || !this.client || this.telling >= MOST_TELLING) return false;
+    this.telling++;
+    this.client.publish(topic, payload, { qos: 1, retain: false }, () => {
+      this.telling--;
+    });
     return true;
   }
 
@@ -169,6 +188,7 @@ export class MqttLink {
       topic: packet.topic,
       payload: Buffer.isBuffer(packet.payload) ? packet.payload : Buffer.from(packet.payload),
       duplicate: packet.dup,
+      retained: packet.retain,
       acknowledge: qos !== 1 || messageId === undefined ? null : () => acknowledge(messageId),
     });
     done(qos === 1 ? LATER : undefined);

@@ -23,7 +23,9 @@ const model = new PageModel();
 /** The list of what stands is always asked of the server whole, never pieced together here. */
 async function reloadAlarms(): Promise<void> {
   try {
-    model.standing = await api.standing();
+    const { standing, suppressed } = await api.alarms();
+    model.standing = standing;
+    model.heldBack = suppressed;
     model.changed();
   } catch {
     // The stream says so if the server is away; the list of before stays, marked as old.

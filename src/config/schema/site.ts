@@ -1,12 +1,12 @@
 import { z } from 'zod';
+import { alarmsSchema } from './alarms.js';
 import { channelSchema } from './channels.js';
 import { id, key, positive, section } from './key.js';
 import { machineSchema } from './machine.js';
 import { notifySchema } from './notify.js';
-import { estimatorSchema, limitsSchema } from './operation.js';
+import { estimatorSchema, limitsSchema, watchSchema } from './operation.js';
 import { httpSchema, influxSchema, localStoreSchema, mqttSchema } from './services.js';
 import { storeSchema } from './store.js';
-import { watchSchema } from './watch.js';
 
 const power_MW = () => positive(5000);
 
@@ -79,6 +79,7 @@ export const siteSchema = z.strictObject({
     influxSchema.optional(),
     'Time-series database; without this block the local store alone serves.',
   ),
+  alarms: section(alarmsSchema.prefault({}), 'What may be done to alarms and alerts.'),
   notify: section(notifySchema.prefault({}), 'Who else is told of alarms and alerts.'),
   store: section(localStoreSchema.prefault({}), 'Local database files.'),
   http: section(httpSchema.prefault({}), 'Page and API.'),

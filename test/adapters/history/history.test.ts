@@ -2,6 +2,7 @@ import { join } from 'node:path';
 import { describe, expect, it } from 'vitest';
 import { History } from '../../../src/adapters/history/history.js';
 import type { StoreConfig } from '../../../src/config/site.js';
+import type { AlarmCommand } from '../../../src/core/alarm/command.js';
 import type { UnitDefinition } from '../../../src/core/definitions.js';
 import { temporaryFolder } from '../../support/folders.js';
 import { estimate, event, NOTHING, unit } from './unit.js';
@@ -174,44 +175,49 @@ describe('retention', () => {
   });
 });
 
+const ACKNOWLEDGE: AlarmCommand = {
+  ...{ id: 'u/front_spread/hot', who: 'mara', hours: null, why: '' },
+  action: 'acknowledge',
+};
+
 describe('events', () => {
   it('stand until they have returned and were acknowledged, in either order', () => {
     const history = opened();
-    const { events } = history;
+    const { events, alarms } = history;
     expect(events.add(event(T, 'raised'))).toBe(true);
-    expect(events.standing()).toMatchObject([{ state: 'unacknowledged', acknowledged_by: null }]);
-    expect(events.acknowledge('u/front_spread/hot', 'mara', T + 1)).toBe(true);
-    expect(events.standing()).toMatchObject([{ state: 'acknowledged', acknowledged_by: 'mara' }]);
+    expect(alarms.entries()).toMatchObject([{ state: 'unacknowledged', acknowledged_by: null }]);
+    expect(alarms.command(ACKNOWLEDGE, T + 1)).toBeNull();
+    expect(alarms.entries()).toMatchObject([{ state: 'acknowledged', acknowledged_by: 'mara' }]);
     events.add(event(T + 2, 'returned'));
-    expect(events.standing()).toEqual([]);
+    expect(alarms.entries()).toEqual([]);
     events.add(event(T + 3, 'raised'));
     events.add(event(T + 4, 'returned'));
-    expect(events.standing()).toMatchObject([{ state: 'returned_unacknowledged' }]);
-    expect(events.standing('other')).toEqual([]);
-    expect(events.acknowledge('u/front_spread/hot', 'mara', T + 5)).toBe(true);
-    expect(events.standing()).toEqual([]);
-    expect(events.acknowledge('u/front_spread/hot', 'mara', T + 6)).toBe(false);
+    expect(alarms.entries()).toMatchObject([{ state: 'returned_unacknowledged' }]);
+    expect(alarms.entries('other')).toEqual([]);
+    expect(alarms.command(ACKNOWLEDGE, T + 5)).toBeNull();
+    expect(alarms.entries()).toEqual([]);
+    expect(alarms.command(ACKNOWLEDGE, T + 6)).toBe('nothing of it is to be acknowledged');
     history.stop();
   });
 
   it('raised again after a return need a new acknowledgement', () => {
     const history = opened();
-    const { events } = history;
+    const { events, alarms } = history;
     events.add(event(T, 'raised'));
-    events.acknowledge('u/front_spread/hot', 'mara', T);
+    alarms.command(ACKNOWLEDGE, T);
     events.add(event(T + 1, 'returned'));
     events.add(event(T + 2, 'raised'));
-    expect(events.standing()).toMatchObject([{ state: 'unacknowledged', acknowledged_by: null }]);
+    expect(alarms.entries()).toMatchObject([{ state: 'unacknowledged', acknowledged_by: null }]);
     history.stop();
   });
 
   it('known already, as in a replay after a restart, change nothing that stands', () => {
     const history = opened();
-    const { events } = history;
+    const { events, alarms } = history;
     events.add(event(T, 'raised'));
-    events.acknowledge('u/front_spread/hot', 'mara', T);
+    alarms.command(ACKNOWLEDGE, T);
     expect(events.add(event(T, 'raised'))).toBe(false);
-    expect(events.standing()).toMatchObject([{ state: 'acknowledged' }]);
+    expect(alarms.entries()).toMatchObject([{ state: 'acknowledged' }]);
     expect(events.between(undefined, T, T, 10)).toHaveLength(1);
     history.stop();
   });

@@ -1,7 +1,6 @@
 import { afterEach, describe, expect, it } from 'vitest';
+import { acknowledgedSchema, alarmsSchema } from '../../../src/adapters/http/schema/alarms.js';
 import {
-  acknowledgedSchema,
-  alarmsSchema,
   countersSchema,
   eventsSchema,
   healthSchema,

@@ -1,11 +1,20 @@
 import type {
+  AlarmAnswer,
   HealthPart,
   HistoryPoint,
   PlantService,
   ServiceMessage,
-  StandingEvent,
   UnitNow,
 } from '../../../src/adapters/http/service.js';
+import { inputOf, isFault, readCommand } from '../../../src/core/alarm/command.js';
+import {
+  type AlarmEntry,
+  entryOf,
+  type RecordedTransition,
+} from '../../../src/core/alarm/entry.js';
+import { type AlarmReport, alarmReport } from '../../../src/core/alarm/report.js';
+import { type AlarmState, isHeldBack, NORMAL } from '../../../src/core/alarm/state.js';
+import { type AlarmInput, type AlarmStep, stepAlarm } from '../../../src/core/alarm/step.js';
 import type { Mode, UnitDefinition } from '../../../src/core/definitions.js';
 import type {
   DispatchAnswer,
@@ -103,8 +112,9 @@ export class ScriptedPlant implements PlantService {
   moment: Moment = { charged: 0.62, mode: 'discharge' };
   scans = 0;
   failHours: Error | null = null;
-  private readonly standingEvents = new Map<string, StandingEvent>();
+  private readonly alarms = new Map<string, { event: WatchEvent; alarm: AlarmState }>();
   private readonly past: WatchEvent[] = [];
+  private readonly transitions: RecordedTransition[] = [];
   private readonly listeners = new Set<(message: ServiceMessage) => void>();
 
   constructor(units: UnitDefinition[] = [unitOf('north', 'North unit', [HOT, COLD])]) {
@@ -150,15 +160,12 @@ export class ScriptedPlant implements PlantService {
       message: `The front in ${event.subject} is 1.62 times as wide as a healthy bed would show.`,
       ...event,
     };
-    const { transition, ...rest } = full;
-    const before = this.standingEvents.get(full.id);
-    if (transition === 'raised') {
-      this.standingEvents.set(full.id, { ...rest, state: 'unacknowledged', acknowledged_by: null });
-    } else if (before?.state === 'acknowledged') {
-      this.standingEvents.delete(full.id);
-    } else if (before !== undefined) {
-      this.standingEvents.set(full.id, { ...before, state: 'returned_unacknowledged' });
-    }
+    const before = this.alarms.get(full.id);
+    const raised = full.transition === 'raised';
+    this.alarms.set(full.id, {
+      event: raised ? full : (before?.event ?? full),
+      alarm: this.moved(before?.alarm ?? NORMAL, { kind: full.transition }).state,
+    });
     this.past.push(full);
     this.say({ kind: 'event', unit, event: full });
     return full;
@@ -402,9 +409,24 @@ export class ScriptedPlant implements PlantService {
     });
   }
 
-  standing(unit?: string): StandingEvent[] {
-    const all = [...this.standingEvents.values()];
-    return unit === undefined ? all : all.filter((event) => event.unit === unit);
+  private moved(alarm: AlarmState, input: AlarmInput): AlarmStep {
+    return stepAlarm(alarm, input, { time_ms: Date.parse(this.time()), latching: false });
+  }
+
+  private entries(unit?: string): AlarmEntry[] {
+    return [...this.alarms.values()].flatMap(({ event, alarm }) =>
+      alarm.state === 'normal' || (unit !== undefined && event.unit !== unit)
+        ? []
+        : [entryOf(event, alarm, event)],
+    );
+  }
+
+  standing(unit?: string): AlarmEntry[] {
+    return this.entries(unit).filter(({ state }) => !isHeldBack(state));
+  }
+
+  heldBack(unit?: string): AlarmEntry[] {
+    return this.entries(unit).filter(({ state }) => isHeldBack(state));
   }
 
   events(unit: string | undefined, from_ms: number, to_ms: number, most: number): WatchEvent[] {
@@ -415,13 +437,46 @@ export class ScriptedPlant implements PlantService {
     return within.slice(-most);
   }
 
-  acknowledge(id: string, who: string): boolean {
-    const event = this.standingEvents.get(id);
-    if (event === undefined) return false;
-    this.acknowledged.push({ id, who });
-    if (event.state === 'returned_unacknowledged') this.standingEvents.delete(id);
-    else this.standingEvents.set(id, { ...event, state: 'acknowledged', acknowledged_by: who });
-    return true;
+  commandAlarm(value: unknown): AlarmAnswer {
+    const command = readCommand(value, 8);
+    if (isFault(command)) return { accepted: false, fault: command };
+    const { id, who, action } = command;
+    const known = this.alarms.get(id);
+    const ids = this.entries().map((entry) => entry.id);
+    if (known === undefined) {
+      const expected = ids.length > 0 ? `one of ${ids.join(', ')}` : 'none stands at present';
+      return {
+        accepted: false,
+        fault: { code: 'unknown_event', field: 'id', value: id, expected },
+      };
+    }
+    const step = this.moved(known.alarm, inputOf(command, Date.parse(this.time())));
+    if (step.refused !== null) {
+      const fault = { code: 'wrong_state' as const, field: 'action', value: action };
+      return { accepted: false, fault: { ...fault, expected: step.refused } };
+    }
+    if (action === 'acknowledge') this.acknowledged.push({ id, who });
+    this.alarms.set(id, { ...known, alarm: step.state });
+    const { time_ms, ...rest } = step.transition!;
+    const time = new Date(time_ms).toISOString();
+    this.transitions.push({ id, unit: known.event.unit, kind: known.event.kind, time, ...rest });
+    this.say({ kind: 'alarms', unit: known.event.unit });
+    const entry = this.entries().find((one) => one.id === id) ?? null;
+    return { accepted: true, command, entry };
+  }
+
+  alarmTransitions(): RecordedTransition[] {
+    return this.transitions;
+  }
+
+  alarmReport(unit: string | undefined, from_ms: number, to_ms: number): AlarmReport {
+    const annunciations = this.past
+      .filter((event) => event.class === 'alarm' && event.transition === 'raised')
+      .map(({ id, time, priority }) => ({ id, time_ms: Date.parse(time), priority }));
+    return alarmReport({
+      ...{ unit: unit ?? null, from_ms, to_ms, annunciations, alerts: 0 },
+      entries: this.entries(unit),
+    });
   }
 
   health(): HealthPart[] {

@@ -1,8 +1,8 @@
 import type { z } from 'zod';
+import type { alarmEntrySchema, alarmsSchema } from '../../../src/adapters/http/schema/alarms.js';
 import type {
   eventsSchema,
   StreamStateView,
-  standingEventSchema,
   UnitNowView,
   UnitProfileView,
   unitHistorySchema,
@@ -10,6 +10,7 @@ import type {
   unitListSchema,
 } from '../../../src/adapters/http/schema/answers.js';
 import type {
+  AlarmLists,
   AskedHours,
   History,
   Profile,
@@ -32,9 +33,10 @@ export type Contract = [
   Sends<z.output<typeof unitHoursSchema>, AskedHours>,
   Sends<z.output<typeof unitListSchema>, UnitList>,
   Sends<z.output<typeof unitHistorySchema>, History>,
-  Sends<z.output<typeof standingEventSchema>, Standing>,
+  Sends<z.output<typeof alarmEntrySchema>, Standing>,
+  Sends<z.output<typeof alarmsSchema>, AlarmLists>,
   Sends<
     z.output<typeof eventsSchema>['events'][number],
-    Omit<Standing, 'state' | 'acknowledged_by'>
+    Omit<Standing, 'state' | 'acknowledged_by' | 'shelved' | 'out_of_service'>
   >,
 ];

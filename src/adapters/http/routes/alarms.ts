@@ -1,11 +1,29 @@
-import { HttpFault } from '../faults.js';
+import type { AlarmAction } from '../../../core/alarm/command.js';
+import { HttpFault, show } from '../faults.js';
 import { checkUnit, faults, type Routes } from '../routes.js';
-import { acknowledgedSchema, alarmsSchema, eventsSchema } from '../schema/answers.js';
-import { acknowledgeBody, alarmsQuery, eventsQuery } from '../schema/questions.js';
-import type { PlantService } from '../service.js';
+import {
+  acknowledgeBody,
+  alarmsQuery,
+  figuresQuery,
+  outOfServiceBody,
+  shelveBody,
+  transitionsQuery,
+} from '../schema/alarmQuestions.js';
+import {
+  acknowledgedSchema,
+  alarmsSchema,
+  commandedSchema,
+  figuresSchema,
+  transitionsSchema,
+} from '../schema/alarms.js';
+import { eventsSchema } from '../schema/answers.js';
+import { eventsQuery } from '../schema/questions.js';
+import type { AlarmAnswer, PlantService } from '../service.js';
 import { spanOf } from './history.js';
 
 const MOST = 200;
+const TAGS = ['alarms'];
+const STATUS = { unknown_event: 404, wrong_state: 409, wrong_value: 400 } as const;
 
 /** The newest estimate of the units asked about. */
 function newestTime(service: PlantService, unit: string | undefined): string | undefined {
@@ -14,24 +32,92 @@ function newestTime(service: PlantService, unit: string | undefined): string | u
   return times.sort().at(-1);
 }
 
-/** GET /api/alarms, GET /api/events, POST /api/alarms/acknowledge */
-export const alarmRoutes: Routes = (app, { service, stream }) => {
-  const tags = ['alarms'];
+type Accepted = Extract<AlarmAnswer, { accepted: true }>;
 
+/** @throws HttpFault where the command is not followed */
+function follow(service: PlantService, action: AlarmAction, body: object): Accepted {
+  const answer = service.commandAlarm({ ...body, action });
+  if (answer.accepted) return answer;
+  const { code, field, value, expected } = answer.fault;
+  const words =
+    code === 'unknown_event'
+      ? `there is nothing to ${action.replaceAll('_', ' ')} under id ${show(value)}; ${expected}`
+      : `${field ?? 'the body'} is ${show(value)}; expected ${expected}`;
+  const detail = { ...(field === null ? {} : { field }), value, expected };
+  throw new HttpFault(STATUS[code], code, words, detail);
+}
+
+function commanded({ command: { id, action, who }, entry }: Accepted) {
+  return { id, action, who, state: entry?.state ?? ('normal' as const), alarm: entry };
+}
+
+/** Lists: /api/alarms with its transitions and figures, /api/events. */
+const listRoutes: Routes = (app, { service }) => {
   app.get(
     '/api/alarms',
     {
       schema: {
         operationId: 'alarms',
-        summary: 'Alarms and alerts that stand, or have returned unacknowledged',
-        tags,
+        summary: 'Alarms and alerts with their states, what is shown apart from what is held back',
+        tags: TAGS,
         querystring: alarmsQuery,
         response: { 200: alarmsSchema.describe('What stands'), ...faults },
       },
     },
     async (request) => {
-      checkUnit(service, request.query.unit);
-      return { standing: service.standing(request.query.unit) };
+      const { unit } = request.query;
+      checkUnit(service, unit);
+      const [standing, suppressed] = [service.standing(unit), service.heldBack(unit)];
+      const counts: Record<string, number> = {};
+      for (const { state } of [...standing, ...suppressed])
+        counts[state] = (counts[state] ?? 0) + 1;
+      return { standing, suppressed, counts };
+    },
+  );
+
+  app.get(
+    '/api/alarms/transitions',
+    {
+      schema: {
+        operationId: 'alarmTransitions',
+        summary: 'Every change of state: when, by whom and why; newest first',
+        description: 'Without from and to: the 24 h before the newest estimate.',
+        tags: TAGS,
+        querystring: transitionsQuery,
+        response: { 200: transitionsSchema.describe('Transitions in the span'), ...faults },
+      },
+    },
+    async (request) => {
+      const { unit, id, most = MOST } = request.query;
+      checkUnit(service, unit);
+      const { from, to } = spanOf(request.query, newestTime(service, unit));
+      return {
+        from: new Date(from).toISOString(),
+        to: new Date(to).toISOString(),
+        transitions: service.alarmTransitions({ unit, id }, from, to, most),
+      };
+    },
+  );
+
+  app.get(
+    '/api/alarms/figures',
+    {
+      schema: {
+        operationId: 'alarmFigures',
+        summary: 'Rates, floods, chattering, stale and most frequent alarms, after ISA-18.2',
+        description: 'Without from and to: the 24 h before the newest estimate.',
+        tags: TAGS,
+        querystring: figuresQuery,
+        response: { 200: figuresSchema.describe('Figures over the span'), ...faults },
+      },
+    },
+    async (request) => {
+      const { unit } = request.query;
+      checkUnit(service, unit);
+      const { from, to } = spanOf(request.query, newestTime(service, unit));
+      const report = service.alarmReport(unit, from, to);
+      // Lists of a report are read-only; an answer's are not, to the type of the schema.
+      return structuredClone(report) as Mutable<typeof report>;
     },
   );
 
@@ -42,7 +128,7 @@ export const alarmRoutes: Routes = (app, { service, stream }) => {
         operationId: 'events',
         summary: 'Alarms and alerts raised and returned',
         description: 'Without from and to: the 24 h before the newest estimate.',
-        tags,
+        tags: TAGS,
         querystring: eventsQuery,
         response: { 200: eventsSchema.describe('Events in the span'), ...faults },
       },
@@ -58,6 +144,24 @@ export const alarmRoutes: Routes = (app, { service, stream }) => {
       };
     },
   );
+};
+
+type Mutable<T> = T extends readonly (infer E)[]
+  ? Mutable<E>[]
+  : T extends object
+    ? { -readonly [K in keyof T]: Mutable<T[K]> }
+    : T;
+
+/** What only a name is asked for. */
+const PLAIN = [
+  ['unshelve', 'unshelve', 'Show it again before its time on the shelf is over'],
+  ['return-to-service', 'return_to_service', 'Take an alarm or alert back into service'],
+  ['reset', 'reset', 'Release a latched alarm or alert that has returned and was acknowledged'],
+] as const;
+
+/** What a person does: acknowledge, shelve, out of service and back. Nothing changes at the plant. */
+const commandRoutes: Routes = (app, { service }) => {
+  const response = { 200: commandedSchema.describe('Recorded'), ...faults };
 
   app.post(
     '/api/alarms/acknowledge',
@@ -66,27 +170,59 @@ export const alarmRoutes: Routes = (app, { service, stream }) => {
         operationId: 'acknowledge',
         summary: 'Acknowledge an alarm or alert',
         description: 'Recorded with the name given; it changes nothing at the plant.',
-        tags,
+        tags: TAGS,
         body: acknowledgeBody,
         response: { 200: acknowledgedSchema.describe('Recorded'), ...faults },
       },
     },
     async (request) => {
-      const { id, who } = request.body;
-      if (!service.acknowledge(id, who)) {
-        const ids = service.standing().map((event) => event.id);
-        const expected =
-          ids.length > 0 ? `one of ${ids.slice(0, 20).join(', ')}` : 'none stands at present';
-        throw new HttpFault(
-          404,
-          'unknown_event',
-          `there is nothing to acknowledge under id ${JSON.stringify(id)}; ${expected}`,
-          { field: 'id', value: id, expected },
-        );
-      }
-      stream.standingChanged();
-      const standing = service.standing().find((event) => event.id === id) ?? null;
-      return { id, acknowledged_by: who, standing };
+      const accepted = follow(service, 'acknowledge', request.body);
+      const { entry, command } = accepted;
+      const acknowledged_by = entry?.acknowledged_by ?? command.who;
+      return { ...commanded(accepted), acknowledged_by, standing: entry };
     },
   );
+
+  app.post(
+    '/api/alarms/shelve',
+    {
+      schema: {
+        operationId: 'shelve',
+        summary: 'Hide an alarm or alert for some hours',
+        description: 'It is shown again, unacknowledged, when the time is over and it stands.',
+        tags: TAGS,
+        body: shelveBody,
+        response,
+      },
+    },
+    async (request) => commanded(follow(service, 'shelve', request.body)),
+  );
+
+  app.post(
+    '/api/alarms/out-of-service',
+    {
+      schema: {
+        operationId: 'out_of_service',
+        summary: 'Take an alarm or alert out of service until it is taken back',
+        tags: TAGS,
+        body: outOfServiceBody,
+        response,
+      },
+    },
+    async (request) => commanded(follow(service, 'out_of_service', request.body)),
+  );
+
+  for (const [path, action, summary] of PLAIN) {
+    app.post(
+      `/api/alarms/${path}`,
+      { schema: { operationId: action, summary, tags: TAGS, body: acknowledgeBody, response } },
+      async (request) => commanded(follow(service, action, request.body)),
+    );
+  }
+};
+
+/** GET and POST below /api/alarms, GET /api/events */
+export const alarmRoutes: Routes = (app, context) => {
+  listRoutes(app, context);
+  commandRoutes(app, context);
 };

@@ -115,7 +115,7 @@ export const unitHistorySchema = z.object({
   rows: z.array(z.record(z.string(), z.union([z.number(), z.string(), z.null()]))),
 });
 
-const eventFields = {
+export const eventFields = {
   id: z.string(),
   unit: z.string(),
   kind: z.enum(EVENT_KINDS),
@@ -133,23 +133,10 @@ export const watchEventSchema = z.object({
   transition: z.enum(['raised', 'returned']),
 });
 
-export const standingEventSchema = z.object({
-  ...eventFields,
-  state: z.enum(['unacknowledged', 'acknowledged', 'returned_unacknowledged']),
-  acknowledged_by: z.string().nullable(),
-});
-
-export const alarmsSchema = z.object({ standing: z.array(standingEventSchema) });
 export const eventsSchema = z.object({
   from: timeSchema,
   to: timeSchema,
   events: z.array(watchEventSchema),
-});
-
-export const acknowledgedSchema = z.object({
-  id: z.string(),
-  acknowledged_by: z.string(),
-  standing: standingEventSchema.nullable().describe('null once it has returned and left the list'),
 });
 
 export const healthSchema = z.object({

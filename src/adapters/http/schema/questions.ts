@@ -10,7 +10,7 @@ export const GREATEST_POWER_MW = 10_000;
 export const MOST_POINTS = 5_000;
 export const MOST_EVENTS = 1_000;
 
-const unitName = z.string().min(1, { error: 'the id of a unit' });
+export const unitName = z.string().min(1, { error: 'the id of a unit' });
 
 export const unitParams = z.strictObject({ unit: unitName });
 
@@ -45,13 +45,13 @@ export const sensorsQuery = z.strictObject({
 });
 
 const INSTANT = 'a time in ISO 8601 with offset, as in 2026-01-31T06:00:00Z';
-const instant = z.iso
+export const instant = z.iso
   .datetime({ offset: true, error: INSTANT })
   .describe(INSTANT)
   .transform((text) => Date.parse(text))
   .refine(Number.isFinite, { error: INSTANT });
 
-function count(most: number) {
+export function count(most: number) {
   const expected = `a whole number from 1 to ${most}`;
   return z
     .string({ error: expected })
@@ -79,28 +79,12 @@ export const historyQuery = z.strictObject({
     .optional(),
 });
 
-export const alarmsQuery = z.strictObject({ unit: unitName.optional() });
-
 export const eventsQuery = z.strictObject({
   unit: unitName.optional(),
   from: instant.optional(),
   to: instant.optional(),
   most: count(MOST_EVENTS).optional(),
 });
-
-const EVENT_ID = 'the id of a standing alarm or alert';
-const WHO = 'a name of 1 to 64 characters';
-
-export const acknowledgeBody = z.strictObject(
-  {
-    id: z.string({ error: EVENT_ID }).min(1, { error: EVENT_ID }).max(300, { error: EVENT_ID }),
-    who: z
-      .string({ error: WHO })
-      .trim()
-      .regex(/^[^\p{Cc}]{1,64}$/u, { error: WHO }),
-  },
-  { error: 'an object {"id": ..., "who": ...}' },
-);
 
 export const streamQuery = z.strictObject({
   profile: unitName

@@ -1,7 +1,7 @@
 import type {
+  AlarmLists,
   AskedHours,
   History,
-  Standing,
   StreamState,
   UnitDefinition,
   UnitList,
@@ -41,7 +41,7 @@ export class Api {
     this.ask<AskedHours>(
       `api/units/${encodeURIComponent(unit)}/hours?power_MW=${power_MW}&stale=mark`,
     );
-  standing = async () => (await this.ask<{ standing: Standing[] }>('api/alarms')).standing;
+  alarms = () => this.ask<AlarmLists>('api/alarms');
 
   history(
     unit: string,

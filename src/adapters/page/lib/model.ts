@@ -23,6 +23,8 @@ export class PageModel {
   units: UnitEntry[] = [];
   selected: string | null = null;
   standing: Standing[] = [];
+  /** Shelved, suppressed by design or out of service. */
+  heldBack: Standing[] = [];
   private readonly listeners: (() => void)[] = [];
   private drawing = false;
 

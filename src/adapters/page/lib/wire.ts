@@ -1,3 +1,4 @@
+import type { AlarmStateName } from '../../../core/alarm/state.js';
 import type {
   DispatchAnswer,
   Estimate,
@@ -96,9 +97,17 @@ export interface UnitList {
 }
 
 export type Standing = Omit<WatchEvent, 'transition'> & {
-  state: 'unacknowledged' | 'acknowledged' | 'returned_unacknowledged';
+  state: AlarmStateName;
   acknowledged_by: string | null;
+  shelved: { by: string; why: string; until: string } | null;
+  out_of_service: { by: string; why: string } | null;
 };
+
+/** What is shown and what is held back. */
+export interface AlarmLists {
+  standing: Standing[];
+  suppressed: Standing[];
+}
 
 export interface History {
   from: string;

@@ -5,13 +5,35 @@ import type { PageModel } from '../lib/model.js';
 import type { Standing } from '../lib/wire.js';
 
 const NAME_KEY = 'rockhour.who';
-const STATE_ORDER = { unacknowledged: 0, returned_unacknowledged: 1, acknowledged: 2 } as const;
+/** Those to acknowledge before the others. */
+const STATE_ORDER: Readonly<Record<Standing['state'], number>> = {
+  unacknowledged: 0,
+  latched_unacknowledged: 1,
+  returned_unacknowledged: 1,
+  acknowledged: 2,
+  latched_acknowledged: 2,
+  normal: 3,
+  shelved: 4,
+  suppressed_by_design: 4,
+  out_of_service: 4,
+};
 const PRIORITY_ORDER = { high: 0, medium: 1, low: 2 } as const;
-const STATE_WORDS = {
+const STATE_WORDS: Readonly<Record<Standing['state'], string>> = {
   unacknowledged: 'not acknowledged',
+  latched_unacknowledged: 'latched, not acknowledged',
   returned_unacknowledged: 'returned to normal, not acknowledged',
   acknowledged: 'acknowledged',
-} as const;
+  latched_acknowledged: 'latched, acknowledged',
+  normal: 'normal',
+  shelved: 'shelved',
+  suppressed_by_design: 'suppressed by design',
+  out_of_service: 'out of service',
+};
+
+/** Waits for somebody to acknowledge it. */
+export function isOpen({ state }: Standing): boolean {
+  return STATE_ORDER[state] < STATE_ORDER.acknowledged;
+}
 
 /** What asks for an answer first: open before acknowledged, alarms before alerts, by priority. */
 export function inOrder(standing: readonly Standing[]): Standing[] {
@@ -39,8 +61,23 @@ function sign(event: Standing): SVGElement {
   );
 }
 
+/** One line on what is held back, by whom and until when. */
+function heldLine(event: Standing, unitName: string): HTMLElement {
+  const { shelved, out_of_service } = event;
+  const by = shelved
+    ? ` by ${shelved.by} until ${dateClock(shelved.until)}: ${shelved.why}`
+    : out_of_service
+      ? ` by ${out_of_service.by}: ${out_of_service.why}`
+      : '';
+  return h(
+    'li',
+    { 'data-id': event.id, 'data-state': event.state },
+    `${event.kind.replaceAll('_', ' ')} · ${unitName} · ${event.subject}: ${STATE_WORDS[event.state]}${by}`,
+  );
+}
+
 function item(event: Standing, unitName: string, acknowledge: () => void): HTMLElement {
-  const open = event.state !== 'acknowledged';
+  const open = isOpen(event);
   const button = h('button', { type: 'button' }, 'Acknowledge');
   button.addEventListener('click', acknowledge);
   const state = event.acknowledged_by
@@ -50,7 +87,7 @@ function item(event: Standing, unitName: string, acknowledge: () => void): HTMLE
     'li',
     {
       'data-id': event.id,
-      'data-state': event.state,
+      'data-state': open ? event.state : 'acknowledged',
       'data-class': event.class,
       'data-priority': event.priority,
     },
@@ -82,10 +119,14 @@ export function alarmsPanel(model: PageModel, api: Api, reload: () => Promise<vo
   const summary = h('p', { class: 'when', role: 'status', 'data-field': 'alarm-count' });
   const fault = h('p', { class: 'fault', role: 'alert' });
   const list = h('ul', { class: 'events', tabindex: 0, 'aria-label': 'Standing' });
+  const heldSummary = h('summary', {});
+  const heldList = h('ul', {});
+  const held = h('details', { class: 'held-back', hidden: true }, heldSummary, heldList);
   const head = byId('open-count');
   byId('alarms').append(
     summary,
     list,
+    held,
     fault,
     h('p', { class: 'who' }, h('label', { for: 'who' }, 'Acknowledge as '), who),
   );
@@ -114,7 +155,7 @@ export function alarmsPanel(model: PageModel, api: Api, reload: () => Promise<vo
   let shown = '';
   return () => {
     const events = inOrder(model.standing);
-    const key = JSON.stringify(events);
+    const key = JSON.stringify([events, model.heldBack]);
     if (key === shown) return;
     shown = key;
     const nameOf = (unit: string) => model.units.find((one) => one.unit === unit)?.name ?? unit;
@@ -122,10 +163,13 @@ export function alarmsPanel(model: PageModel, api: Api, reload: () => Promise<vo
     list.replaceChildren(
       ...events.map((event) => item(event, nameOf(event.unit), () => void acknowledge(event))),
     );
+    heldList.replaceChildren(...model.heldBack.map((one) => heldLine(one, nameOf(one.unit))));
+    setText(heldSummary, `${model.heldBack.length} held back`);
+    setAttributes(held, { hidden: model.heldBack.length === 0 });
     // The list was made anew: a keyboard user stays where he was.
     const same = [...list.children].find((one) => (one as HTMLElement).dataset.id === focused);
     same?.querySelector('button')?.focus();
-    const open = events.filter((event) => event.state !== 'acknowledged');
+    const open = events.filter(isOpen);
     const alarms = open.filter((event) => event.class === 'alarm').length;
     const rest = open.length - alarms;
     const counts = [

@@ -1,5 +1,6 @@
 import { byId, h, setAttributes, setText } from '../lib/dom.js';
 import type { PageModel } from '../lib/model.js';
+import { isOpen } from './alarms.js';
 
 /** One button per unit, with what stands unacknowledged there and whether its data are stale. */
 export function unitsPanel(model: PageModel, onSelect: (unit: string) => void): () => void {
@@ -27,7 +28,7 @@ export function unitsPanel(model: PageModel, onSelect: (unit: string) => void): 
       const { button, note } = buttons.get(entry.unit)!;
       setAttributes(button, { 'aria-pressed': entry.unit === model.selected ? 'true' : 'false' });
       const open = model.standing.filter(
-        (event) => event.unit === entry.unit && event.state !== 'acknowledged',
+        (event) => event.unit === entry.unit && isOpen(event),
       ).length;
       const parts = [open > 0 && `${open} open`, entry.stale && 'stale'].filter(Boolean);
       setText(note, parts.join(', '));
