@@ -4,9 +4,10 @@ import { channelSchema } from './channels.js';
 import { id, key, positive, section } from './key.js';
 import { machineSchema } from './machine.js';
 import { notifySchema } from './notify.js';
-import { estimatorSchema, limitsSchema, watchSchema } from './operation.js';
+import { estimatorSchema, limitsSchema } from './operation.js';
 import { httpSchema, influxSchema, localStoreSchema, mqttSchema } from './services.js';
 import { storeSchema } from './store.js';
+import { watchSchema } from './watch.js';
 
 const power_MW = () => positive(5000);
 
