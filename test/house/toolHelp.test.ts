@@ -9,6 +9,7 @@ describe('the help of the tools', () => {
   it.each([
     ['tools/score.ts', ['npm run score', '--tuning', '--strict', '--truths-only']],
     ['tools/tuneScore.ts', ['rockhour tune', '--runs', '--workers', '--strict']],
+    ['tools/watchScore.ts', ['npm run score:watch', '--trace', '--tuning', '--strict']],
     ['tools/bench.ts', ['npm run bench']],
   ])(
     '%s prints what stands at its head, and does nothing else',
