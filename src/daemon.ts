@@ -327,6 +327,7 @@ class RockhourDaemon implements Daemon {
     const { announcer } = this.mqtt;
     for (const [id, { unit, view }] of this.runners) {
       if (view.estimate) announcer.state(view.estimate);
+      if (view.watch) announcer.watch(view.watch);
       if (view.dispatch) this.sayHours(unit, view.dispatch.time, view.dispatch.answers);
       const table = this.service.newestKept(id);
       if (table) this.sayOffers(id, table);
@@ -337,6 +338,7 @@ class RockhourDaemon implements Daemon {
     const { estimate } = step;
     const { announcer } = this.mqtt;
     announcer.state(estimate);
+    if (step.watch) announcer.watch(step.watch);
     this.hoursOnChange.stepped(runner, estimate, this.pipeline.backlog);
     this.headroomOnHours.stepped(runner, estimate, this.pipeline.backlog);
     if (estimate.dispatch) this.sayHours(runner.unit, estimate.time, estimate.dispatch);

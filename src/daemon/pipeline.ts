@@ -208,12 +208,14 @@ export class Pipeline {
 
   private enter(runner: UnitRunner, step: RunnerStep): void {
     const { history, stepped, event, alarmsMoved } = this.options;
-    const { estimate, profile, events } = step.step;
+    const { estimate, profile, events, cycle, watch } = step.step;
     const time_ms = Date.parse(estimate.time);
     try {
       const news = history.write(() => {
         const isNew = history.estimates.add(runner.unit, estimate, step.measured);
         if (profile) history.estimates.addProfile(profile);
+        if (cycle) history.cycles.add(cycle);
+        if (watch) history.watch.add(watch);
         // A scan that is known, as in a replay after a restart, has moved its alarms already.
         const moved = isNew && history.alarms.scan(runner.unit.id, estimate.mode, time_ms);
         return { isNew, moved, events: events.filter((one) => history.events.add(one)) };

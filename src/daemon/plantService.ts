@@ -9,12 +9,15 @@ import type {
 } from '../adapters/http/service.js';
 import type { AlarmEntry, RecordedTransition } from '../core/alarm/entry.js';
 import type { AlarmReport } from '../core/alarm/report.js';
+import type { Mode } from '../core/definitions.js';
 import type { DispatchAnswer } from '../core/estimate.js';
 import type { PlanAnswer, PlanQuestion } from '../core/plan/ask.js';
 import type { OffersAsk } from '../core/plan/offerAsk.js';
 import type { OfferReport } from '../core/plan/offerReport.js';
 import type { KeptOffers } from '../core/plan/offerSummary.js';
 import type { AnsweredOffers } from '../core/plan/offerTable.js';
+import type { WatchView } from '../core/watch/causes.js';
+import type { CycleRecord } from '../core/watch/cycleRecord.js';
 import type { WatchEvent } from '../core/watch/event.js';
 import type { UnitWorth } from '../core/worth/unitWorth.js';
 import type { AlarmPart } from './alarmPart.js';
@@ -139,6 +142,21 @@ export class DaemonService implements PlantService {
 
   historySeries(unit: string): string[] {
     return this.parts.history.estimates.names(this.runner(unit).unit);
+  }
+
+  watch(unit: string): WatchView | null {
+    return this.runner(unit).view.watch;
+  }
+
+  cycles(
+    unit: string,
+    from_ms: number,
+    to_ms: number,
+    kind: Mode | undefined,
+    most: number,
+  ): CycleRecord[] {
+    this.runner(unit);
+    return this.parts.history.cycles.between(unit, from_ms, to_ms, kind, most);
   }
 
   standing(unit?: string): AlarmEntry[] {

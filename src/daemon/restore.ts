@@ -35,6 +35,7 @@ export function restoreRunner(runner: UnitRunner, parts: RestoreParts): void {
       estimate: history.estimates.latest(id),
       profile: history.estimates.latestProfile(id),
       dispatch: history.estimates.latestDispatch(id),
+      watch: history.watch.latest(id),
     });
     return;
   }

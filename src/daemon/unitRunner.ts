@@ -16,6 +16,7 @@ import { PlantClock } from '../core/scan/plantClock.js';
 import type { Scan } from '../core/scan/scan.js';
 import type { ScanCounts } from '../core/scanCounts.js';
 import type { UnitSnapshot, UnitState, UnitStep } from '../core/unit.js';
+import type { WatchView } from '../core/watch/causes.js';
 import type { Core } from './core.js';
 
 /** What a checkpoint holds: estimator and open scans, as of one journal entry. */
@@ -38,6 +39,8 @@ export interface RunnerView {
   measured: Measured;
   /** Of the newest scan; null before the first of this process. */
   counts: ScanCounts | null;
+  /** What the indicators show, and what is probably behind it. */
+  watch: WatchView | null;
 }
 
 /**
@@ -53,6 +56,7 @@ export class UnitRunner {
     dispatch: null,
     measured: { flow_kg_s: null, power_MW_el: null },
     counts: null,
+    watch: null,
   };
   private assembler: Assembler;
   private state: UnitState;
@@ -153,6 +157,7 @@ export class UnitRunner {
     const { estimate, profile } = step;
     const measured = measuredIn(this.unit, scan, estimate);
     Object.assign(this.view, { estimate, profile, measured, counts: step.counts ?? null });
+    if (step.watch) this.view.watch = step.watch;
     if (estimate.dispatch) this.view.dispatch = { time: estimate.time, answers: estimate.dispatch };
     return { closed, step, measured };
   }
@@ -167,7 +172,7 @@ export class UnitRunner {
 }
 
 /** Flow (positive while charging) and net power as measured in a scan. */
-function measuredIn(unit: UnitDefinition, scan: Scan, estimate: Estimate): Measured {
+export function measuredIn(unit: UnitDefinition, scan: Scan, estimate: Estimate): Measured {
   let flow = Number.NaN;
   let power = Number.NaN;
   unit.channels.forEach(({ role }, i) => {

@@ -1,6 +1,7 @@
 import type { StoreConfig } from '../../config/site.js';
 import { type AlarmRules, Alarms } from './alarms.js';
 import { Checkpoints } from './checkpoints.js';
+import { Cycles } from './cycles.js';
 import { type Database, openDatabase, storeFailure } from './database.js';
 import { Estimates } from './estimates.js';
 import { EventQueue } from './eventQueue.js';
@@ -10,6 +11,7 @@ import { Outbox } from './outbox.js';
 import { applyRetention, type RetentionCounts } from './retention.js';
 import { HISTORY_SCHEMA } from './schema.js';
 import { Sequence } from './sequence.js';
+import { WatchViews } from './watchViews.js';
 
 /**
  * The local history: one SQLite file with estimates, dispatch answers, offers, profiles, events,
@@ -25,6 +27,8 @@ export class History {
     readonly checkpoints: Checkpoints;
     readonly outbox: Outbox;
     readonly offers: Offers;
+    readonly cycles: Cycles;
+    readonly watch: WatchViews;
     readonly sequence: Sequence;
   } | null = null;
 
@@ -48,6 +52,8 @@ export class History {
       checkpoints: new Checkpoints(database),
       outbox: new Outbox(database),
       offers: new Offers(database),
+      cycles: new Cycles(database, sequence),
+      watch: new WatchViews(database),
       sequence,
     };
   }
@@ -74,6 +80,12 @@ export class History {
   }
   get offers(): Offers {
     return this.parts.offers;
+  }
+  get cycles(): Cycles {
+    return this.parts.cycles;
+  }
+  get watch(): WatchViews {
+    return this.parts.watch;
   }
 
   /** Events for a receiver that keeps its own place among them. */

@@ -1,5 +1,7 @@
 import type { IPoint } from 'influx';
 import { ZERO_CELSIUS_K } from '../../core/units.js';
+import type { CycleRecord } from '../../core/watch/cycleRecord.js';
+import { cycleView } from '../../core/watch/cycleView.js';
 import type { OutboxItem } from './outbox.js';
 
 /**
@@ -22,6 +24,13 @@ import type { OutboxItem } from './outbox.js';
  * - `rockhour_event`, tags `unit`, `kind`, `subject`, `transition`: value, threshold (the limit;
  *   `limit` is a word of its query language); class, priority,
  *   message (string)
+ * - `rockhour_cycle`, at the end of a run, tags `unit`, `run` (charge, stand or discharge), and `store`
+ *   where it is of a store: of the unit running_h, span_h, drawn_MWh_el, delivered_MWh_el,
+ *   power_most_MW_el, flow_mean_kg_s, soc_from, soc_to, ambient_mean_degC, round_trip, raised (how
+ *   many); incomplete (string); of a store soc_from, soc_to, stored_from_MWh_th, stored_to_MWh_th,
+ *   stored_sigma_MWh_th, carried_MWh_th, lost_MWh_th, outlet_from_degC, outlet_to_degC, hottest_degC,
+ *   coldest_degC, heat_transfer_factor, heat_transfer_factor_sigma, thermocouples_rejected, and at a
+ *   quarter, half and three quarters of the length width_25_m, spread_ratio_25, width_50_m and so on
  */
 export function pointsOf(item: OutboxItem): IPoint[] {
   const timestamp = new Date(item.time_ms);
@@ -36,6 +45,7 @@ export function pointsOf(item: OutboxItem): IPoint[] {
     const fields = { value, threshold: limit, class: item.content.class, priority, message };
     return point('rockhour_event', { unit, kind, subject, transition }, fields);
   }
+  if (item.kind === 'cycle') return cyclePoints(item.content, point);
   return item.content.flatMap(({ power_MW, hours, energy_MWh_el: energy, ends_by }) =>
     point(
       'rockhour_dispatch',
@@ -80,6 +90,42 @@ function estimatePoints(estimate: Estimate, point: MakePoint): IPoint[] {
     );
   }
   return points;
+}
+
+function cyclePoints(record: CycleRecord, point: MakePoint): IPoint[] {
+  const view = cycleView(record);
+  const { unit, kind, from, to } = view;
+  const tags = { unit, run: kind };
+  const of_unit = point('rockhour_cycle', tags, {
+    running_h: view.running_h,
+    span_h: (Date.parse(to) - Date.parse(from)) / 3_600_000,
+    drawn_MWh_el: view.drawn_MWh_el,
+    delivered_MWh_el: view.delivered_MWh_el,
+    power_most_MW_el: view.power_most_MW_el,
+    flow_mean_kg_s: view.flow_mean_kg_s,
+    soc_from: view.soc_from,
+    soc_to: view.soc_to,
+    ambient_mean_degC: view.ambient_mean_degC,
+    round_trip: view.round_trip,
+    raised: view.raised.length,
+    incomplete: view.incomplete.join(' ') || null,
+  });
+  const of_stores = Object.entries(view.stores).flatMap(([store, run]) => {
+    const { widths, flow_factors: _, ...fields } = run;
+    const placed = widths.flatMap(({ share, width_m, spread_ratio }) => {
+      const percent = Math.round(100 * share);
+      return [
+        [`width_${percent}_m`, width_m],
+        [`spread_ratio_${percent}`, spread_ratio],
+      ];
+    });
+    return point(
+      'rockhour_cycle',
+      { ...tags, store },
+      { ...fields, ...Object.fromEntries(placed) },
+    );
+  });
+  return [...of_unit, ...of_stores];
 }
 
 function viewFields(view: Estimate['stores'][string]['front_views'][number] | undefined): Fields {

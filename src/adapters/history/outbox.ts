@@ -1,4 +1,5 @@
 import type { DispatchAnswer, Estimate } from '../../core/estimate.js';
+import type { CycleRecord } from '../../core/watch/cycleRecord.js';
 import type { WatchEvent } from '../../core/watch/event.js';
 import type { Database } from './database.js';
 
@@ -22,6 +23,13 @@ export type OutboxItem =
       readonly seq: number;
       readonly time_ms: number;
       readonly content: WatchEvent;
+    }
+  | {
+      readonly kind: 'cycle';
+      readonly seq: number;
+      /** The end of the run. */
+      readonly time_ms: number;
+      readonly content: CycleRecord;
     };
 
 interface Row {
@@ -57,7 +65,8 @@ export class Outbox {
     const rows = this.database
       .prepare(
         `${part('estimate', 'estimates')} UNION ALL ${part('dispatch', 'dispatch')}
-         UNION ALL ${part('event', 'events')} ORDER BY seq LIMIT @most`,
+         UNION ALL ${part('event', 'events')}
+         UNION ALL ${part('cycle', 'cycles')} ORDER BY seq LIMIT @most`,
       )
       .all({ cursor, most }) as Row[];
     return rows.map(
@@ -72,7 +81,8 @@ export class Outbox {
       .prepare(
         `SELECT (SELECT count(*) FROM estimates WHERE seq > @cursor)
            + (SELECT count(*) FROM dispatch WHERE seq > @cursor)
-           + (SELECT count(*) FROM events WHERE seq > @cursor)`,
+           + (SELECT count(*) FROM events WHERE seq > @cursor)
+           + (SELECT count(*) FROM cycles WHERE seq > @cursor)`,
       )
       .pluck()
       .get({ cursor: this.cursor }) as number;

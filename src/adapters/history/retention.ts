@@ -9,6 +9,7 @@ const STEP_MS = DAY_MS;
 export interface RetentionCounts {
   readonly estimates: number;
   readonly events: number;
+  readonly cycles: number;
   /** Kept offer tables that were too old, too many or too large together. */
   readonly offers: number;
   /** Deleted although the time-series database had not yet taken them over. */
@@ -36,12 +37,13 @@ export function applyRetention(
       .pluck()
       .get(end, limit) as number;
     let estimates = remove(database, 'estimates', end);
-    for (const table of ['dispatch', 'profiles']) remove(database, table, end);
+    for (const table of ['dispatch', 'profiles', 'watch']) remove(database, table, end);
     const offers = remove(database, 'offers', end) + removeSurplusOffers(database);
     const events = remove(database, 'events', end);
+    const cycles = remove(database, 'cycles', end);
     remove(database, 'alarm_transitions', end);
     estimates += thinEstimates(database, store, now_ms, limit);
-    return { estimates, events, offers, not_forwarded };
+    return { estimates, events, cycles, offers, not_forwarded };
   })();
 }
 

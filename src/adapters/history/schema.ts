@@ -1,6 +1,6 @@
 /**
  * The local history. Times are ms since 1970 of the source. `seq` numbers estimates, dispatch
- * answers and events together, in the order in which they were made: the forwarder's cursor.
+ * answers, events and cycles together, in the order in which they were made: the forwarder's cursor.
  */
 export const HISTORY_SCHEMA = [
   `CREATE TABLE layouts (no INTEGER PRIMARY KEY, names TEXT NOT NULL UNIQUE);
@@ -71,4 +71,11 @@ export const HISTORY_SCHEMA = [
      ORDER BY time;
    DROP TABLE standing;
    DROP TABLE acknowledgements;`,
+  // Charges, stands and discharges once they are over (time: their end), and what indicators showed.
+  `CREATE TABLE cycles (
+     seq INTEGER PRIMARY KEY, unit TEXT NOT NULL, "from" INTEGER NOT NULL, time INTEGER NOT NULL,
+     kind TEXT NOT NULL, no INTEGER NOT NULL, json TEXT NOT NULL, UNIQUE (unit, "from"));
+   CREATE TABLE watch (
+     unit TEXT NOT NULL, time INTEGER NOT NULL, json TEXT NOT NULL, PRIMARY KEY (unit, time))
+     WITHOUT ROWID;`,
 ];

@@ -19,6 +19,7 @@ import { scheduleRoutes } from './routes/schedule.js';
 import { statusRoutes } from './routes/status.js';
 import { streamRoutes } from './routes/stream.js';
 import { unitRoutes } from './routes/units.js';
+import { watchRoutes } from './routes/watch.js';
 import type { HttpApp, RouteContext } from './routes.js';
 import type { PlantService } from './service.js';
 import { LiveStream } from './stream.js';
@@ -173,6 +174,7 @@ export async function createHttpApp(
         offerRoutes,
         scheduleRoutes,
         historyRoutes,
+        watchRoutes,
         alarmRoutes,
         streamRoutes,
       ]) {

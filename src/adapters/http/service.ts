@@ -1,7 +1,7 @@
 import type { AlarmCommand, CommandFault } from '../../core/alarm/command.js';
 import type { AlarmEntry, RecordedTransition } from '../../core/alarm/entry.js';
 import type { AlarmReport } from '../../core/alarm/report.js';
-import type { UnitDefinition } from '../../core/definitions.js';
+import type { Mode, UnitDefinition } from '../../core/definitions.js';
 import type { DispatchAnswer, Estimate, ProfileView } from '../../core/estimate.js';
 import type { PlanAnswer, PlanQuestion } from '../../core/plan/ask.js';
 import type { OffersAsk } from '../../core/plan/offerAsk.js';
@@ -9,6 +9,8 @@ import type { OfferReport } from '../../core/plan/offerReport.js';
 import type { KeptOffers } from '../../core/plan/offerSummary.js';
 import type { AnsweredOffers } from '../../core/plan/offerTable.js';
 import type { ScanCounts } from '../../core/scanCounts.js';
+import type { WatchView } from '../../core/watch/causes.js';
+import type { CycleRecord } from '../../core/watch/cycleRecord.js';
 import type { WatchEvent } from '../../core/watch/event.js';
 import type { UnitWorth } from '../../core/worth/unitWorth.js';
 
@@ -77,6 +79,16 @@ export interface PlantService {
   /** At most `points` rows per call, thinned evenly on the server; series names as documented. */
   history(unit: string, from_ms: number, to_ms: number, points: number): HistoryPoint[];
   historySeries(unit: string): string[];
+  /** What the indicators of the newest scan show; null before the first. */
+  watch(unit: string): WatchView | null;
+  /** Runs that lie in a span or reach into it, the newest `most` of them, oldest first. */
+  cycles(
+    unit: string,
+    from_ms: number,
+    to_ms: number,
+    kind: Mode | undefined,
+    most: number,
+  ): CycleRecord[];
   /** Alarms and alerts that are shown, and those held back: shelved, suppressed, out of service. */
   standing(unit?: string): AlarmEntry[];
   heldBack(unit?: string): AlarmEntry[];

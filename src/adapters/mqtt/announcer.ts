@@ -1,6 +1,7 @@
 import type { Estimate } from '../../core/estimate.js';
 import type { Headroom } from '../../core/plan/headroom.js';
 import type { LimitedAnswer } from '../../core/plan/limitedBy.js';
+import { statesOf, type WatchView } from '../../core/watch/causes.js';
 import type { WatchEvent } from '../../core/watch/event.js';
 
 /** As much of the link as announcing needs. */
@@ -54,6 +55,8 @@ export interface AnnouncerOptions {
 
 /** Spacing of the heartbeat [ms]. */
 export const HEARTBEAT_MS = 10_000;
+/** Spacing of what the indicators show, by source time, while no state changes [ms]. */
+const WATCH_MS = 60_000;
 
 /**
  * What rockhour says over MQTT, all of it retained and at least once (QoS 1), as JSON:
@@ -63,6 +66,8 @@ export const HEARTBEAT_MS = 10_000;
  * - `PREFIX/UNIT/headroom`  what the unit can still take at configured charging powers, see HeadroomMessage
  * - `PREFIX/UNIT/offers`    the offer table kept last without its blocks, with `no` and `asked`
  * - `PREFIX/UNIT/alarms`    see AlarmsMessage; `.../command` and `.../answer` are in alarmCommands
+ * - `PREFIX/UNIT/watch`     what the indicators show and what is probably behind it, see WatchView; at
+ *                           most once a minute of source time unless an indicator changed its state
  * - `PREFIX/heartbeat`      `{"status": "online", "time", "site", "version", "uptime_s"}` every 10 s,
  *                           and `{"status": "offline"}` by the broker's last will or a clean stop
  *
@@ -70,6 +75,7 @@ export const HEARTBEAT_MS = 10_000;
  */
 export class Announcer {
   private readonly latest = new Map<string, string>();
+  private readonly watched = new Map<string, { time_ms: number; states: string }>();
   private timer: NodeJS.Timeout | null = null;
   private readonly started_ms: number;
 
@@ -121,6 +127,16 @@ export class Announcer {
 
   alarms(message: AlarmsMessage): void {
     this.say(`${message.unit}/alarms`, message);
+  }
+
+  watch(view: WatchView): void {
+    const { unit } = view;
+    const time_ms = Date.parse(view.time);
+    const states = statesOf(view);
+    const last = this.watched.get(unit);
+    if (last?.states === states && Math.abs(time_ms - last.time_ms) < WATCH_MS) return;
+    this.watched.set(unit, { time_ms, states });
+    this.say(`${unit}/watch`, view);
   }
 
   private say(name: string, content: object): void {

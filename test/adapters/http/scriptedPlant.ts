@@ -29,6 +29,8 @@ import { type OfferReport, offerReport } from '../../../src/core/plan/offerRepor
 import { type KeptOffers, summaryOf } from '../../../src/core/plan/offerSummary.js';
 import type { AnsweredOffers } from '../../../src/core/plan/offerTable.js';
 import type { ScanCounts } from '../../../src/core/scanCounts.js';
+import type { WatchView } from '../../../src/core/watch/causes.js';
+import type { CycleRecord } from '../../../src/core/watch/cycleRecord.js';
 import type { WatchEvent } from '../../../src/core/watch/event.js';
 import type { UnitWorth } from '../../../src/core/worth/unitWorth.js';
 import { COLD, HOT, unitOf } from './scriptedDefinitions.js';
@@ -206,6 +208,25 @@ export class ScriptedPlant implements PlantService {
       },
       ends_by: power_MW > 3 ? 'flow' : 'hot_outlet',
     };
+  }
+
+  /** What the indicators show, and the runs that are over. */
+  watched: WatchView | null = null;
+  readonly runs: CycleRecord[] = [];
+
+  watch(): WatchView | null {
+    return this.watched;
+  }
+
+  cycles(unit: string, from_ms: number, to_ms: number, kind: Mode | undefined, most: number) {
+    const within = this.runs.filter(
+      (one) =>
+        one.unit === unit &&
+        (kind ?? one.kind) === one.kind &&
+        Date.parse(one.to) >= from_ms &&
+        Date.parse(one.from) <= to_ms,
+    );
+    return within.slice(-most);
   }
 
   failPlan: Error | null = null;

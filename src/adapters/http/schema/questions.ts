@@ -79,6 +79,18 @@ export const historyQuery = z.strictObject({
     .optional(),
 });
 
+const RUN = 'charge, stand or discharge';
+
+export const cyclesQuery = z.strictObject({
+  from: instant.optional(),
+  to: instant.optional(),
+  kind: z.enum(['charge', 'stand', 'discharge'], { error: RUN }).describe(RUN).optional(),
+  format: z
+    .enum(['json', 'csv'], { error: 'json or csv' })
+    .describe('json or csv; without it the Accept header decides')
+    .optional(),
+});
+
 export const eventsQuery = z.strictObject({
   unit: unitName.optional(),
   from: instant.optional(),
