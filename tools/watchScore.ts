@@ -27,6 +27,7 @@ import { tableText } from './score/table.js';
 import { PARTS, type Part, scoreWatch, WATCH_FROM, WATCH_SEEDS } from './watch/runWatch.js';
 import { trace } from './watch/trace.js';
 import { branchOf } from './watch/watchJob.js';
+import { TRUTH_CODE } from './watch/watchTruth.js';
 
 helpIfAsked(import.meta.url);
 
@@ -69,7 +70,7 @@ if (values.trace !== undefined) {
     before: values.before,
     write: (line: string) => console.log(line),
   };
-  trace(options, await codeHash('tools/watch/watchTruth.ts'));
+  trace(options, await codeHash(TRUTH_CODE));
   process.exit(0);
 }
 

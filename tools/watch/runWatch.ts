@@ -15,6 +15,7 @@ import {
   type WatchJob,
   watchResult,
 } from './watchJob.js';
+import { TRUTH_CODE } from './watchTruth.js';
 import { WEEKS_SEED } from './weeks.js';
 import type { WatchAnswer } from './worker.js';
 
@@ -46,7 +47,7 @@ export interface WatchScore {
 
 /** Hashes of what truths and results depend on. */
 export async function watchHashes(): Promise<WatchHashes> {
-  const truth = await codeHash('tools/watch/watchTruth.ts');
+  const truth = await codeHash(TRUTH_CODE);
   const code = await codeHash('tools/watch/watchJob.ts');
   const config = readFileSync(join(root, 'config/demo.yaml'), 'utf8');
   const result = createHash('sha256').update(truth).update(code).update(config).digest('hex');
