@@ -10,6 +10,7 @@ import {
   headLine,
   stateFromRecording,
 } from './aheadState.js';
+import { firstMinutesText } from './firstMinutesText.js';
 import { limitLine } from './hours.js';
 import { table } from './table.js';
 import { parsePowers_W } from './values.js';
@@ -44,6 +45,11 @@ function text(answer: HeadroomAnswer): string {
     table([...header, 'ends by'], rows),
     ...answer.answers.flatMap(({ power_MW_el, refused, limited_by }) =>
       limited_by === null || refused !== null ? [] : [limitLine(power_MW_el, 'taken', limited_by)],
+    ),
+    ...answer.answers.flatMap(({ power_MW_el, first_minutes }) =>
+      first_minutes === undefined
+        ? []
+        : [`${power_MW_el} MW_el: ${firstMinutesText(first_minutes, 'taken')}.`],
     ),
     ...answer.answers.flatMap(deratedLine),
     'p90 is the firm figure: exceeded with 90 % probability.',

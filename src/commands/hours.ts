@@ -15,6 +15,7 @@ import {
   onlyUnitOf,
 } from './aheadState.js';
 import { askDaemon } from './daemonAnswer.js';
+import { firstMinutesText } from './firstMinutesText.js';
 import { loadUnit } from './site.js';
 import { table } from './table.js';
 import { parsePoint_ms, parsePowers_W } from './values.js';
@@ -103,6 +104,11 @@ function text(answer: HoursAnswer): string {
     table([...header, 'ends by'], rows),
     ...answer.answers.flatMap(({ power_MW, limited_by }) =>
       limited_by === null ? [] : [limitLine(power_MW, 'given', limited_by)],
+    ),
+    ...answer.answers.flatMap(({ power_MW, first_minutes }) =>
+      first_minutes === undefined
+        ? []
+        : [`${power_MW} MW: ${firstMinutesText(first_minutes, 'given')}.`],
     ),
     'p90 is the firm figure: exceeded with 90 % probability.',
   ].join('\n');

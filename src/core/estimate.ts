@@ -105,11 +105,28 @@ export interface Quantiles {
   p10: number;
 }
 
+/**
+ * What is missing of a power at first: after a long rest the gas at the end where it leaves has cooled, and
+ * the greatest flow does not give the power asked until that gas is pushed out, within 10 minutes.
+ */
+export interface FirstMinutes {
+  /** That more than 0.5 % of the energy of the first quarter of an hour is missing. */
+  readonly probability: number;
+  /** At its most, likeliest; and not exceeded with 90 % probability. */
+  readonly lacking_MW: number;
+  readonly lacking_at_worst_MW: number;
+  /** Until the power asked is had, likeliest; 0 where likeliest nothing is missing. */
+  readonly minutes: number;
+  readonly lacking_MWh_el: number;
+}
+
 export interface DispatchAnswer {
   power_MW: number;
   hours: Quantiles;
   energy_MWh_el: Quantiles;
   ends_by: EndCause;
+  /** Absent = nothing that counts is missing at first, with 90 % probability. */
+  first_minutes?: FirstMinutes;
 }
 
 export interface Estimate {

@@ -1,4 +1,5 @@
 import type { OfferTable, WrittenOffer } from '../../core/plan/offerTable.js';
+import { firstMinutesText } from '../firstMinutesText.js';
 import { table } from '../table.js';
 
 const percent = (share: number): string => `${Math.round(share * 100)} %`;
@@ -54,6 +55,9 @@ function remarks(offer: WrittenOffer): string[] {
   }
   if (offer.plan_stores_hold !== null && offer.plan_stores_hold < 0.995) {
     said.push(`the stores carry the plan until then with ${percent(offer.plan_stores_hold)}`);
+  }
+  if (offer.first_minutes !== undefined && offer.refused === null) {
+    said.push(firstMinutesText(offer.first_minutes, 'given'));
   }
   if (offer.bid !== null) {
     const { certainty, energy_MWh_el } = offer.bid;

@@ -1,4 +1,5 @@
 import type { RunView, Schedule, ShortfallView } from '../../core/plan/schedule.js';
+import { firstMinutesText } from '../firstMinutesText.js';
 import { table } from '../table.js';
 
 const three = (value: number): string => value.toFixed(3);
@@ -32,7 +33,14 @@ function runsText({ runs, reserve_looked_hours }: Schedule): string[] {
     ...[run.mode, run.from, run.to, percent(run.probability), ...reserve(run)],
     ...[run.ends_by ?? 'nothing near', run.stops ?? 'no'],
   ]);
-  return [table(header, rows)];
+  const early = runs.flatMap(({ mode, from, first_minutes }) =>
+    first_minutes === undefined
+      ? []
+      : [
+          `${mode} from ${from}: ${firstMinutesText(first_minutes, mode === 'charge' ? 'taken' : 'given')}.`,
+        ],
+  );
+  return [table(header, rows), ...early];
 }
 
 function blocksText(schedule: Schedule): string[] {

@@ -2,11 +2,15 @@ import { enthalpyAt, temperatureAt } from '../bed/tables.js';
 import type { Quantiles } from '../estimate.js';
 import { referenceEnthalpies, storeEnergy } from '../track/storeEnergy.js';
 import type { StoreState } from '../track/storeTracker.js';
+import { type FirstLack, firstMinutes, leastMargin, lidSigma } from './firstMinutes.js';
 import type { HoursInput } from './hours.js';
 import { memberAt, type Slopes } from './members.js';
 import { BUMP_K, BUMPS, bumpWeights, type Perturbation, type Roller } from './roller.js';
 import { type RolloutResult, RULES, SWEEP_MOST_S } from './rollout.js';
 
+const FLOW = RULES.indexOf('flow');
+/** Index of the least margin while the lids are swept among those of `marginsOf`, after the rules. */
+const LEAST = RULES.length;
 /** 10 % of a normal lie beyond so many sigmas. */
 const SIGMAS_10 = 1.2815515655446004;
 const PROBE_LOG = 0.01;
@@ -37,8 +41,8 @@ export function quantilesAtStart(
 }
 
 /**
- * Within this share of the greatest flow it is looked at whether the discharge would begin: beyond,
- * no machine and meter are so unsure (a sigma of a fifth).
+ * Within this share of the power it is looked at whether the discharge would begin, or lack something
+ * at first: beyond, no machine and meter are so unsure (a sigma of a fifth).
  */
 const FLOW_NEAR = 0.25;
 
@@ -47,13 +51,40 @@ const FLOW_NEAR = 0.25;
  * firm then, though the hours of those that begin are many. They are no continuation of none, as they
  * are where an outlet decides.
  */
-export function mayNotBegin(input: HoursInput, roller: Roller, best: RolloutResult): boolean {
-  const rule = RULES.indexOf('flow');
-  const margin = best.first_margins[rule] as number;
-  const most = input.unit.limits.discharge.flow_max_kg_s;
-  if (!(margin < FLOW_NEAR * most)) return false;
-  const slopes = startSlopes(input, roller, best, rule);
+export function mayNotBegin(
+  input: HoursInput,
+  roller: Roller,
+  best: RolloutResult,
+  power_W: number,
+): boolean {
+  const margin = best.first_margins[FLOW] as number;
+  if (!(margin < FLOW_NEAR * power_W)) return false;
+  const slopes = startSlopes(input, roller, best, FLOW);
   return slopes !== null && margin < SIGMAS_10 * memberAt(input, slopes).sigma;
+}
+
+/**
+ * What is missing of the power at first, while the lids are swept and the greatest flow does not give
+ * it; null where that is surely nothing that counts. The least margin is taken as Gaussian, and a plant
+ * in which it is less has less by as much all along.
+ */
+export function lackAtFirst(
+  input: HoursInput,
+  roller: Roller,
+  best: RolloutResult,
+  power_W: number,
+): FirstLack | null {
+  const margin = leastMargin(best.start);
+  if (!(margin < FLOW_NEAR * power_W)) return null;
+  const slopes = startSlopes(input, roller, best, LEAST);
+  const known = slopes === null ? 0 : memberAt(input, slopes).sigma;
+  const sigma = Math.hypot(known, lidSigma(best.start));
+  return firstMinutes(best.start, power_W, sigma);
+}
+
+/** What each rule has left at its first test, and the least margin while the lids are swept. */
+function marginsOf({ first_margins, start }: RolloutResult): number[] {
+  return [...first_margins, leastMargin(start)];
 }
 
 /**
@@ -68,9 +99,10 @@ function startSlopes(
 ): Slopes | null {
   const base = roller.start();
   const from = base.end_s === 0 ? base : best;
+  const before = marginsOf(base);
   const along = (change: Perturbation, delta: number): number[] =>
-    Array.from(roller.start(change).first_margins, (margin, r) => {
-      const slope = (margin - (base.first_margins[r] as number)) / delta;
+    marginsOf(roller.start(change)).map((margin, r) => {
+      const slope = (margin - (before[r] as number)) / delta;
       return Number.isFinite(slope) ? slope : 0;
     });
   const bumps = input.models.map((_, s) =>
@@ -80,8 +112,8 @@ function startSlopes(
   const work = along({ work: PROBE_LOG }, PROBE_LOG);
   let most = Number.NEGATIVE_INFINITY;
   let found: Slopes | null = null;
-  from.first_margins.forEach((margin, r) => {
-    if (!Number.isFinite(margin) || (only !== undefined && r !== only)) return;
+  marginsOf(from).forEach((margin, r) => {
+    if (!Number.isFinite(margin) || r !== (only ?? Math.min(r, LEAST - 1))) return;
     const slopes: Slopes = {
       cells: input.models.map((model, s) => {
         const weights = Array.from({ length: BUMPS }, (_, b) => bumpWeights(model, b));

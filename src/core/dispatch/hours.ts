@@ -6,7 +6,8 @@ import type { StoreModel, StoreState } from '../track/storeTracker.js';
 import type { TubeState } from '../track/tube.js';
 import { unseenSigma } from '../track/unseenFlow.js';
 import { earliestQuantiles } from './earliestQuantiles.js';
-import { mayNotBegin, quantilesAtEnd, quantilesAtStart } from './edge.js';
+import { lackAtFirst, mayNotBegin, quantilesAtEnd, quantilesAtStart } from './edge.js';
+import type { FirstLack } from './firstMinutes.js';
 import type { Gaussian } from './gaussian.js';
 import { addProfile } from './profileCovariance.js';
 import { BUMP_K, BUMPS, createRoller, type Roller } from './roller.js';
@@ -45,7 +46,8 @@ const J_PER_MWH = 3.6e9;
  * the filter's covariance P and that of the calibration it gives the covariance of the tau_r. The
  * hours are the minimum over the rules: its quantiles are taken over fixed quasi-random points of
  * that joint Gaussian, so they carry no sampling noise from call to call. p90 is exceeded with 90 %
- * probability. Where the central run does not begin, or is not over long after the time answered,
+ * probability. What is missing of the power in the first minutes is told (see `lackAtFirst`) and taken
+ * from the energy. Where the central run does not begin, or is not over long after the time answered,
  * single plants stand for the quantiles: see `quantilesAtStart` and `quantilesAtEnd`.
  *
  * @throws RangeError for a power that is not above 0
@@ -54,21 +56,22 @@ export function computeHours(input: HoursInput, power_W: number): DispatchAnswer
   if (!(power_W > 0)) throw new RangeError(`power_W = ${power_W}: expected above 0`);
   const roller = createRoller(input, power_W);
   const best = roller.best();
+  const lack = lackAtFirst(input, roller, best, power_W);
   const by = best.ends_by;
-  if (!(best.end_s > 0)) return answer(power_W, quantilesAtStart(input, roller, best), by);
+  if (!(best.end_s > 0)) return answer(power_W, quantilesAtStart(input, roller, best), by, lack);
   if (best.end_s > roller.known_to_s) {
-    return answer(power_W, quantilesAtEnd(input, roller, best), by);
+    return answer(power_W, quantilesAtEnd(input, roller, best), by, lack);
   }
   const base = roller.roll();
   const fine = roller.rollFine();
   if (base.end_s === 0 || fine.end_s === 0) {
-    return answer(power_W, quantilesAtStart(input, roller, best), by);
+    return answer(power_W, quantilesAtStart(input, roller, best), by, lack);
   }
   // Rules that were not reached while rolling cannot bind; they are left out of the minimum.
   const live = RULES.map((_, r) => r).filter((r) =>
     [best, base, fine].every((result) => Number.isFinite(result.times_s[r] as number)),
   );
-  if (live.length === 0) return answer(power_W, quantilesAtEnd(input, roller, best), by);
+  if (live.length === 0) return answer(power_W, quantilesAtEnd(input, roller, best), by, lack);
   const covariance = live.map(() => new Float64Array(live.length));
   const slope = (times: Float64Array, delta: number, from = base): number[] =>
     live.map((r) => {
@@ -103,8 +106,8 @@ export function computeHours(input: HoursInput, power_W: number): DispatchAnswer
   const hours = earliestQuantiles(mean, covariance);
   const within = (h: number): number => Math.min(h, roller.most_s / 3600);
   const { p50, p10 } = hours;
-  const p90 = mayNotBegin(input, roller, best) ? 0 : hours.p90;
-  return answer(power_W, { p90: within(p90), p50: within(p50), p10: within(p10) }, by);
+  const p90 = mayNotBegin(input, roller, best, power_W) ? 0 : hours.p90;
+  return answer(power_W, { p90: within(p90), p50: within(p50), p10: within(p10) }, by, lack);
 }
 
 /**
@@ -178,16 +181,20 @@ export function centralHours(
   };
 }
 
-function answer(power_W: number, hours: Quantiles, ends_by: EndCause): DispatchAnswer {
+function answer(
+  power_W: number,
+  hours: Quantiles,
+  ends_by: EndCause,
+  lack: FirstLack | null,
+): DispatchAnswer {
   const power_MW = power_W / 1e6;
+  const energy = (of: keyof Quantiles): number =>
+    Math.max(0, hours[of] * 3600 * power_W - (lack?.missing_J[of] ?? 0)) / J_PER_MWH;
   return {
     power_MW,
     hours,
-    energy_MWh_el: {
-      p90: (hours.p90 * 3600 * power_W) / J_PER_MWH,
-      p50: (hours.p50 * 3600 * power_W) / J_PER_MWH,
-      p10: (hours.p10 * 3600 * power_W) / J_PER_MWH,
-    },
+    energy_MWh_el: { p90: energy('p90'), p50: energy('p50'), p10: energy('p10') },
     ends_by,
+    ...(lack === null ? {} : { first_minutes: lack.told }),
   };
 }

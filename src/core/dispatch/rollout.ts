@@ -4,8 +4,9 @@ import type { StoreDefinition, UnitDefinition } from '../definitions.js';
 import type { EndCause } from '../estimate.js';
 import type { Machine } from '../machine/machine.js';
 import type { WallModel } from '../track/wallZone.js';
+import { beginMargin, leastMargin, type StartMargin } from './firstMinutes.js';
 import { excessLag, isSwept, throughPlenum } from './plenum.js';
-import { endOfBed, greatestDrop, stepStore } from './stepStore.js';
+import { endOfBed, flowWithin, greatestDrop, stepStore } from './stepStore.js';
 
 /** One tube as the rollout needs it. */
 export interface RolloutTube {
@@ -53,6 +54,9 @@ export const RULES: readonly EndCause[] = [
   'empty',
 ];
 
+const FLOW = RULES.indexOf('flow');
+const DROP = RULES.indexOf('pressure_drop');
+
 /** When a rolled-out discharge ends and by which rule; times from its start [s]. */
 export interface RolloutResult {
   /** When each rule is first broken [s], Infinity where it is not within the time rolled. */
@@ -62,8 +66,13 @@ export interface RolloutResult {
    * plant would stop then, or not start at all.
    */
   readonly trips_s: number;
-  /** What each rule had left at its first test, negative where broken; NaN where there is no such rule. */
+  /**
+   * What each rule had left at its first test, negative where broken; NaN where there is no such rule.
+   * Of `flow` [W] as `beginMargin` has it.
+   */
   readonly first_margins: Float64Array;
+  /** Power that flow and pressure drop let through less that asked, until the lids are swept. */
+  readonly start: readonly StartMargin[];
   /** Earliest of them, and which. Infinity with `empty` where none was broken. */
   readonly end_s: number;
   readonly ends_by: EndCause;
@@ -81,10 +90,11 @@ const FOLLOW = 0.15;
  * together: each step takes the metered flow m that P needs at the present mixed outlets,
  * m = (P + aux)/(w(T_hot, T_cold) kappa), and gives each tube m f_k/A.
  *
- * The rules wait until the plenum is swept, 10 minutes at most, and until then the flow is that of
- * what the beds deliver: gas that stood in a cold pipe must not end a discharge. Where a rule is
- * still broken then, the discharge has not begun: 0 h. Each rule's time is interpolated within its
- * step, so the result is smooth in the state. What leaves a bed is known as the mean of a step, so
+ * The outlets' rules wait until the plenum is swept, 10 minutes at most: gas that stood under a lid must
+ * not end a discharge. Flow and pressure drop do not wait. Where the power would need more than they
+ * let through, the unit gives what it can (`start`); it has not begun, 0 h, where more than
+ * `LACK_MOST` is missing meanwhile or a rule is still broken then. Each rule's time is interpolated
+ * within its step, so the result is smooth in the state. What leaves a bed is known as the mean of a step, so
  * it counts for that step's middle, later by the lag of the plenum (see `excessLag`); the flow of a
  * step is that of its own middle, by a straight line through the last two.
  */
@@ -107,9 +117,8 @@ export function rollOut(
       ? s.plenum_K
       : endOfBed(s, beds[i] as Float64Array[], 'charge_inlet'),
   );
-  const delivered = input.stores.map((s, i) =>
-    endOfBed(s, beds[i] as Float64Array[], 'charge_inlet'),
-  );
+  const start: StartMargin[] = [];
+  let scarce = FLOW;
   const hotIndex = input.stores.findIndex((s) => s.store.kind === 'hot');
   const coldIndex = input.stores.findIndex((s) => s.store.kind === 'cold');
   let swept = false;
@@ -120,11 +129,9 @@ export function rollOut(
   let flowBefore = Number.NaN;
   let step_s = input.step_s / SWEEP_PARTS;
   for (let t = 0; t <= input.most_s; t += step_s) {
-    // Until the lids are swept the flow is that of what the beds deliver, not of a cold pipe.
-    const seen = swept ? plenum : delivered;
     const outlets = {
-      hot_K: seen[hotIndex] ?? Number.NaN,
-      cold_K: coldIndex >= 0 ? (seen[coldIndex] as number) : null,
+      hot_K: plenum[hotIndex] ?? Number.NaN,
+      cold_K: coldIndex >= 0 ? (plenum[coldIndex] as number) : null,
     };
     const point = machine.operate('discharge', outlets, input.ambient_K);
     const work = point.specificWork_J_kg * input.workFactor;
@@ -142,9 +149,20 @@ export function rollOut(
       limits.pressure_drop_max_Pa === null ? Number.NaN : limits.pressure_drop_max_Pa - drop,
       point.specificWork_J_kg,
     ];
+    let most = limits.discharge.flow_max_kg_s;
+    if (!swept) {
+      most = flowWithin(input.stores, beds, limits.pressure_drop_max_Pa, most);
+      const margin_W = powerAt(input, most, work) - input.power_W;
+      if (margin_W < leastMargin(start))
+        scarce = most < limits.discharge.flow_max_kg_s ? DROP : FLOW;
+      start.push({ t_s: t, margin_W });
+    }
     if (!swept && (t >= SWEEP_MOST_S || isSwept(input.stores, plenum, sweptMass, t))) {
       swept = true;
       atFirst.set(margins);
+      const begins_W = beginMargin(start, input.power_W);
+      atFirst[FLOW] = begins_W;
+      if (!(begins_W > 0)) times[scarce] = first = 0;
     }
     if (swept) step_s = input.step_s;
     const mean = lags.reduce((sum, lag) => sum + lag, 0) / lags.length;
@@ -169,7 +187,7 @@ export function rollOut(
     // Past its first broken rule the flow may run away; the rest only serves the other rules' times.
     const ahead = flow + (flow - flowBefore) * (0.5 + mean / step_s);
     const middle = ahead > 0 ? ahead : flow;
-    const used = Math.min(middle, (swept ? 2 : 1) * limits.discharge.flow_max_kg_s);
+    const used = Math.min(middle, swept ? 2 * limits.discharge.flow_max_kg_s : most);
     // While the lids are swept the flow says nothing of what follows.
     if (swept) flowBefore = flow;
     input.stores.forEach((store, i) => {
@@ -187,7 +205,6 @@ export function rollOut(
         },
         works[i] ?? [],
       );
-      delivered[i] = out;
       lags[i] = excessLag(store, plenum[i] as number, out, used, step_s);
       plenum[i] = throughPlenum(store, plenum[i] as number, out, used, step_s);
       sweptMass[i] = (sweptMass[i] as number) + used * step_s;
@@ -205,9 +222,16 @@ export function rollOut(
     times_s: times,
     trips_s: trips,
     first_margins: atFirst,
+    start,
     end_s: end,
     ends_by: cause,
   };
+}
+
+/** Net power [W] of a flow at a work per kilogram at rated flow. */
+function powerAt(input: RolloutInput, flow_kg_s: number, work_J_kg: number): number {
+  const work = work_J_kg * (input.partLoad?.(flow_kg_s) ?? 1);
+  return flow_kg_s * work - input.machine.auxiliary_running_W;
 }
 
 /**

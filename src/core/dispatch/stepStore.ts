@@ -102,3 +102,26 @@ export function greatestDrop(
   });
   return worst;
 }
+
+/**
+ * Flow at which the worse store drops the pressure allowed, at most `most_kg_s` [kg/s]. The drop is
+ * a m + b m2 (Ergun), so the secant from the greatest flow settles within a few turns.
+ *
+ * @param limit_Pa null = none
+ */
+export function flowWithin(
+  stores: readonly RolloutStore[],
+  beds: readonly (readonly Float64Array[])[],
+  limit_Pa: number | null,
+  most_kg_s: number,
+): number {
+  if (limit_Pa === null || greatestDrop(stores, beds, most_kg_s) <= limit_Pa) return most_kg_s;
+  let flow = most_kg_s;
+  for (let i = 0; i < 30; i++) {
+    const ratio = limit_Pa / greatestDrop(stores, beds, flow);
+    if (Math.abs(ratio - 1) < 1e-6) break;
+    // Between the root of a purely inertial and the ratio of a purely viscous drop.
+    flow *= ratio ** 0.6;
+  }
+  return flow;
+}

@@ -157,10 +157,14 @@ export function stepAhead(
       return;
     }
     for (const end of ['charge_inlet', 'discharge_inlet'] as const) {
-      const { area_m2, end_capacity_J_K } = store.store.bed;
-      const rate = (STANDING_CONTACT_W_M2K * area_m2) / Math.max(1, end_capacity_J_K[end]);
+      const { area_m2, end_capacity_J_K, end_loss_W_m2K, loss_factor } = store.store.bed;
+      // The lid's steel stands between the bed and the weather.
+      const loss = end_loss_W_m2K[end] * loss_factor;
+      const both = STANDING_CONTACT_W_M2K + loss;
+      const rate = (both * area_m2) / Math.max(1, end_capacity_J_K[end]);
       const bed = endOfBed(store, beds, end);
-      ends[end] = bed + (ends[end] - bed) * Math.exp(-rate * dt_s);
+      const rest = (STANDING_CONTACT_W_M2K * bed + loss * model.ambient_K) / both;
+      ends[end] = rest + (ends[end] - rest) * Math.exp(-rate * dt_s);
     }
     ahead.left_K[i] = endOfBed(store, beds, OUTLET[direction]);
   });

@@ -1,3 +1,4 @@
+import { leastMargin } from '../dispatch/firstMinutes.js';
 import { RULES } from '../dispatch/rollout.js';
 import type { EndCause } from '../estimate.js';
 import type { Course } from './course.js';
@@ -106,7 +107,15 @@ export function blendCourse(
       first_s = time_s;
       ends_by = RULES[rule] as EndCause;
     });
-    episodes.push({ ...episode, times_s, first_s, ends_by });
+    const apart_W = (node: ResponseNode): number => {
+      const [best, own] = [node.course, node.base].map((of) =>
+        leastMargin(of.episodes[e]?.start ?? []),
+      ) as [number, number];
+      return Number.isFinite(best - own) ? best - own : 0;
+    };
+    const shift_W = apart_W(low) + (apart_W(high) - apart_W(low)) * weight;
+    const start = episode.start.map(({ t_s, margin_W }) => ({ t_s, margin_W: margin_W + shift_W }));
+    episodes.push({ ...episode, times_s, first_s, ends_by, start });
   }
   return { ...base, episodes };
 }
@@ -137,7 +146,11 @@ export function blendResponse(
   const rows = times.map((q) => {
     const length = lengthOf(course, q);
     const share = (node: ResponseNode, own: number): { at: number; factor: number }[] => {
-      const at = node.times.findIndex((p) => p.episode === q.episode && p.rule === q.rule);
+      const at = node.times.findIndex(
+        (p) => p.episode === q.episode && p.rule === q.rule && p.start === q.start,
+      );
+      // A margin of the first minutes hangs on the gas that stood, not on how long the run lasts.
+      if (q.start) return at < 0 ? [] : [{ at, factor: own }];
       const before = at < 0 ? 0 : lengthOf(node.course, node.times[at] as RuleTime);
       return before > 0 ? [{ at, factor: (own * length) / before }] : [];
     };

@@ -1,5 +1,6 @@
 import type { UnitDefinition } from '../definitions.js';
 import { energyBetween } from './course.js';
+import type { Episode } from './episode.js';
 import { type Evaluation, exceeded } from './evaluation.js';
 import { NORMAL_COUNT } from './latinNormals.js';
 import { directionOf, type Leg } from './leg.js';
@@ -60,7 +61,7 @@ function figuresOf(
   energies: readonly RunEnergy[],
   certainty: number,
 ): BlockFigures {
-  const { command, course, first_s, stop_s, derate_s } = evaluation;
+  const { command, course, breaks_s, first_s, start_W, stop_s, derate_s } = evaluation;
   const { from_s, to_s } = leg;
   const direction = directionOf(leg);
   const net_J = energyBetween(course.delivered, from_s, to_s);
@@ -82,9 +83,14 @@ function figuresOf(
   for (let k = 0; k < NORMAL_COUNT; k++) {
     let holds = true;
     for (const { e, begin, end, energy, all, held } of within) {
-      const breaks = first_s[e]?.[k] as number;
+      const breaks = breaks_s[e]?.[k] as number;
       if (breaks < Math.min(end, held) - SAME_S) holds = false;
-      const whole = (stop_s[e]?.[k] as number) >= end && (derate_s[e]?.[k] as number) >= end;
+      // What is missing in a run's first minutes is of the block that they are in.
+      const { from_s: begins, start } = course.episodes[e] as Episode;
+      const early = start_W[e] && begin < begins + (start[start.length - 1]?.t_s ?? 0);
+      if (early && (first_s[e]?.[k] as number) < begin + SAME_S) holds = false;
+      const whole =
+        !early && (stop_s[e]?.[k] as number) >= end && (derate_s[e]?.[k] as number) >= end;
       values[k]! += whole ? all : energy.delivered(k, begin, end);
     }
     if (holds) met++;

@@ -1,8 +1,9 @@
 import type { BedWork } from '../bed/kernel.js';
 import type { Direction } from '../definitions.js';
+import type { StartMargin } from '../dispatch/firstMinutes.js';
 import { excessLag, isSwept } from '../dispatch/plenum.js';
 import { RULES, SWEEP_MOST_S } from '../dispatch/rollout.js';
-import { endOfBed } from '../dispatch/stepStore.js';
+import { endOfBed, flowWithin } from '../dispatch/stepStore.js';
 import type { EndCause } from '../estimate.js';
 import {
   type AheadModel,
@@ -46,6 +47,11 @@ export interface Episode {
    * rules never held.
    */
   readonly closest: Closest;
+  /**
+   * Until the lids are swept, and at the first moment after: power that flow and pressure drop let
+   * through less that commanded, by the time since `from_s`. Where that is below 0 it gives less.
+   */
+  readonly start: readonly StartMargin[];
   /** When the unit stopped before its commanded end; null = it did not. */
   readonly stopped_s: number | null;
   /** From when on it gave or took less than commanded, at its greatest flow; null = never. */
@@ -115,6 +121,7 @@ export interface Run {
   first: number;
   derated: number | null;
   closest: Closest;
+  readonly start: StartMargin[];
   readonly shares: DeratedShare[];
   readonly times: Float64Array;
   readonly before: Float64Array;
@@ -127,7 +134,8 @@ export interface Run {
  * Each step takes the metered flow that its mean commanded power needs at the present mixed outlets.
  * Where that is above the greatest flow, the unit goes on with the greatest and gives less; below its
  * least power, or where another rule breaks, it stops. Rules wait until the outlet's plenum is swept,
- * 10 minutes at most (see rollOut, whose timing within a step this follows). Past a stop, and past
+ * 10 minutes at most (see rollOut, whose timing within a step this follows); what flow and pressure drop
+ * let through does not, so that a run may give less at first (`start`). Past a stop, and past
  * the end of the last power, copies of the beds go on so that every rule has a time; what breaks
  * within the ramp down to standing stops the unit there but is no rule's time.
  *
@@ -216,6 +224,7 @@ export function marchEpisode(
       ends_by: cause,
       stopped_s: stopped,
       closest: (held ?? running).run.closest,
+      start: on.run.start,
       derated_s: running.run.derated,
       shares: on.run.shares,
     },
@@ -253,6 +262,7 @@ function startRun(model: AheadModel, ahead: BedsAhead, direction: Direction, fro
     first: Number.POSITIVE_INFINITY,
     derated: null,
     closest: { margin_W: Number.POSITIVE_INFINITY, t_s: from_s },
+    start: [],
     shares: [],
     times: new Float64Array(RULES.length).fill(Number.POSITIVE_INFINITY),
     before: new Float64Array(RULES.length).fill(Number.NaN),
@@ -265,6 +275,7 @@ function copyRun(run: Run): Run {
     ...run,
     sweptMass: [...run.sweptMass],
     lags: [...run.lags],
+    start: [...run.start],
     shares: [...run.shares],
     times: run.times.slice(),
     before: run.before.slice(),
@@ -292,17 +303,22 @@ function stepRun(
 ): { stopped_s: number | null; share: number } {
   const { direction, t } = run;
   const end = OUTLET[direction];
-  const seen = run.swept ? ahead.ends_K.map((ends) => ends[end]) : ahead.left_K;
-  const outlets = outletsOf(model, seen);
+  const plena = ahead.ends_K.map((ends) => ends[end]);
+  const outlets = outletsOf(model, plena);
   const point = model.machine.operate(direction, outlets, model.ambient_K);
   const work = point.specificWork_J_kg;
   const needed = flowFor(model, direction, power_W, work, run.flow);
   const limits = model.unit.limits;
-  const most = limits[direction].flow_max_kg_s;
+  const whole = limits[direction].flow_max_kg_s;
+  const most = run.swept
+    ? whole
+    : flowWithin(model.stores, ahead.beds, limits.pressure_drop_max_Pa, whole);
   const drop = worstDrop(model, ahead, Math.min(needed, most));
   const margins = marginsOf(model, direction, outlets, power_W, drop, work);
   const elapsed = t - run.from_s;
-  const plena = ahead.ends_K.map((ends) => ends[end]);
+  if (!run.swept) {
+    run.start.push({ t_s: elapsed, margin_W: powerOf(model, direction, most, work) - power_W });
+  }
   if (
     !run.swept &&
     (elapsed >= SWEEP_MOST_S || isSwept(model.stores, plena, run.sweptMass, elapsed, end))

@@ -1,4 +1,5 @@
 import type { Direction } from '../definitions.js';
+import { SETTLED_S, toldBelow } from '../dispatch/firstMinutes.js';
 import { RULES } from '../dispatch/rollout.js';
 import type { Command } from './command.js';
 import type { Course } from './course.js';
@@ -13,6 +14,7 @@ import {
   responseOf,
   ruleSamples,
   ruleTimes,
+  startMargins,
 } from './spread.js';
 import { withSteadyFlow } from './steadyFlow.js';
 
@@ -20,8 +22,15 @@ import { withSteadyFlow } from './steadyFlow.js';
 export interface Evaluation {
   readonly command: Command;
   readonly course: Course;
-  /** Per run: when its first rule breaks [s], and which (index in `RULES`, -1 = none). */
+  /**
+   * Per run: when it first gives less than commanded [s], and by which rule (index in `RULES`, -1 =
+   * none): its first rule breaks, or more is missing in its first minutes than goes untold.
+   */
   readonly first_s: readonly Float64Array[];
+  /** Per run: when its first rule breaks, what is missing in its first minutes aside [s]. */
+  readonly breaks_s: readonly Float64Array[];
+  /** Per run: least margin of its first minutes [W], see `lackBetween`; null = nothing near to missing. */
+  readonly start_W: readonly (Float64Array | null)[];
   readonly rule: readonly Int8Array[];
   /** Per run: when it stops [s], and from when on it needs more than the greatest flow [s]. */
   readonly stop_s: readonly Float64Array[];
@@ -55,13 +64,15 @@ export function evaluate(
   beyond_s: number,
 ): Evaluation {
   const course = marches.best();
-  const times = [...ruleTimes(course), ...closestFlows(course, command)].filter((q) =>
-    isAsked(command, course.episodes[q.episode] as Episode),
-  );
+  const times = [
+    ...ruleTimes(course),
+    ...closestFlows(course, command),
+    ...startMargins(course, command),
+  ].filter((q) => isAsked(command, course.episodes[q.episode] as Episode));
   const slopes = responseOf(outlook.model, marches, times);
   const response = withSteadyFlow(slopes, times, command, course);
   const covariance = covarianceOf(outlook, command, course, times, response);
-  return { ...samplesOf({ course, times, covariance }), command, course, beyond_s };
+  return { ...samplesOf({ course, times, covariance }, command), command, course, beyond_s };
 }
 
 /** Whether a run serves any leg: one that only comes down from before the plan does not. */
@@ -74,17 +85,23 @@ export function isAsked({ pieces }: Command, { direction, from_s, to_s }: Episod
 
 function samplesOf(
   spread: PlanSpread,
-): Pick<Evaluation, 'first_s' | 'rule' | 'stop_s' | 'derate_s' | 'samples'> {
+  command: Command,
+): Omit<Evaluation, 'command' | 'course' | 'beyond_s'> {
   const { episodes } = spread.course;
   const never = (): Float64Array[] =>
     episodes.map(() => new Float64Array(NORMAL_COUNT).fill(Number.POSITIVE_INFINITY));
-  const first_s = never();
+  const breaks_s = never();
   const stop_s = never();
   const derate_s = never();
   const rule = episodes.map(() => new Int8Array(NORMAL_COUNT).fill(-1));
-  const all = ruleSamples(spread).map((values, a) => {
-    const { episode: e, rule: r, closest_s } = spread.times[a] as (typeof spread.times)[number];
-    return { e, rule: r, values, reached: closest_s === undefined };
+  const start_W: (Float64Array | null)[] = episodes.map(() => null);
+  const all = ruleSamples(spread).flatMap((values, a) => {
+    const q = spread.times[a] as (typeof spread.times)[number];
+    if (q.start) {
+      start_W[q.episode] = values;
+      return [];
+    }
+    return [{ e: q.episode, rule: q.rule, values, reached: q.closest_s === undefined }];
   });
   for (const { e, rule: r, values, reached } of all) {
     const own = r === FLOW ? derate_s : stop_s;
@@ -97,12 +114,32 @@ function samplesOf(
     values.forEach((value, k) => {
       if (touch?.[k] === Number.POSITIVE_INFINITY) return;
       if (value < (own[e]?.[k] as number)) (own[e] as Float64Array)[k] = value;
-      if (!(value < (first_s[e]?.[k] as number))) return;
-      (first_s[e] as Float64Array)[k] = value;
+      if (!(value < (breaks_s[e]?.[k] as number))) return;
+      (breaks_s[e] as Float64Array)[k] = value;
       (rule[e] as Int8Array)[k] = r;
     });
   }
-  return { first_s, rule, stop_s, derate_s, samples: all.filter(({ reached }) => reached) };
+  const first_s = breaks_s.map((own, e) => {
+    const margins_W = start_W[e];
+    const episode = episodes[e] as Episode;
+    if (!margins_W) return own;
+    const below_W = toldBelow(episode.start, greatestPower(command, episode));
+    return own.map((break_s, k) => {
+      if (!((margins_W[k] as number) < below_W)) return break_s;
+      (rule[e] as Int8Array)[k] = FLOW;
+      return episode.from_s;
+    });
+  });
+  const samples = all.filter(({ reached }) => reached);
+  return { first_s, breaks_s, start_W, rule, stop_s, derate_s, samples };
+}
+
+/** Greatest power commanded in the first quarter of an hour of a run, about which `toldBelow` asks [W]. */
+export function greatestPower({ pieces }: Command, { direction, from_s }: Episode): number {
+  const first = pieces.filter(
+    (piece) => piece.mode === direction && piece.to_s > from_s && piece.from_s < from_s + SETTLED_S,
+  );
+  return Math.max(0, ...first.map((p) => Math.max(Math.abs(p.power0_W), Math.abs(p.power1_W))));
 }
 
 /**

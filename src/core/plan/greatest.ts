@@ -1,5 +1,6 @@
 import type { Direction } from '../definitions.js';
-import { type AheadModel, type BedsAhead, outletsOf, powerOf, worstDrop } from './bedsAhead.js';
+import { flowWithin } from '../dispatch/stepStore.js';
+import { type AheadModel, type BedsAhead, outletsOf, powerOf } from './bedsAhead.js';
 import { seenAt } from './limitToLimit.js';
 
 /** What keeps a power from being greater. */
@@ -40,25 +41,9 @@ export function greatestPower(
   const work = model.machine.operate(direction, outlets, model.ambient_K).specificWork_J_kg;
   const ceiling = nominalCeiling(model, direction);
   const most = model.unit.limits[direction].flow_max_kg_s;
-  const allowed = flowAtDrop(model, ahead, most);
+  const { pressure_drop_max_Pa } = model.unit.limits;
+  const allowed = flowWithin(model.stores, ahead.beds, pressure_drop_max_Pa, most);
   const power_W = Math.max(0, powerOf(model, direction, Math.min(most, allowed), work));
   if (power_W >= ceiling.power_W) return ceiling;
   return { power_W, limited_by: allowed < most ? 'pressure_drop' : 'flow' };
-}
-
-/**
- * Flow at which the worse store drops the pressure allowed, at most `most_kg_s` [kg/s]. The drop is
- * a m + b m2 (Ergun), so the secant from the greatest flow settles within a few turns.
- */
-function flowAtDrop(model: AheadModel, ahead: BedsAhead, most_kg_s: number): number {
-  const limit = model.unit.limits.pressure_drop_max_Pa;
-  if (limit === null || worstDrop(model, ahead, most_kg_s) <= limit) return most_kg_s;
-  let flow = most_kg_s;
-  for (let i = 0; i < 30; i++) {
-    const ratio = limit / worstDrop(model, ahead, flow);
-    if (Math.abs(ratio - 1) < 1e-6) break;
-    // Between the root of a purely inertial and the ratio of a purely viscous drop.
-    flow *= ratio ** 0.6;
-  }
-  return flow;
 }

@@ -1,5 +1,5 @@
 import { RULES } from '../dispatch/rollout.js';
-import type { EndCause, Quantiles } from '../estimate.js';
+import type { EndCause, FirstMinutes, Quantiles } from '../estimate.js';
 import { type Command, commandOf } from './command.js';
 import type { PlanContext } from './context.js';
 import { energyBetween } from './course.js';
@@ -9,6 +9,7 @@ import type { CommandCause } from './leg.js';
 import { limitedBy } from './limitedBy.js';
 import { BEYOND_S, createOutlook, type Outlook } from './outlook.js';
 import { runEnergy } from './runEnergy.js';
+import { firstMinutesOf } from './runFirstMinutes.js';
 import type { Marches } from './spread.js';
 
 export interface HeadroomAsk {
@@ -37,6 +38,8 @@ export interface Headroom {
   readonly refused: string | null;
   /** What keeps it from that power at some time within the p10 of the hours; null = nothing does. */
   readonly limited_by: CommandCause | null;
+  /** Absent = nothing that counts is missing at first, with 90 % probability. */
+  readonly first_minutes?: FirstMinutes;
 }
 
 /** Longest charge that is looked at, over the rated hours at rated power. */
@@ -113,6 +116,7 @@ export function headroomOf(context: PlanContext, ask: HeadroomAsk): Headroom[] {
       ...deratingOf(episode, power_MW_el, derate_s, ends_s),
       refused: null,
       limited_by: limitedBy(unit, 'charge', power_W, context.now_ms, hours.p10 * 3600),
+      ...firstMinutesOf(evaluation, run),
     };
   });
 }

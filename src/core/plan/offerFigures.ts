@@ -15,10 +15,22 @@ export interface OfferedRun {
   readonly pieces: readonly Delivered[];
   /** When it ends, at equally likely points; Infinity = not within the time looked ahead. */
   readonly stops_s: Float64Array;
+  /** What is missing in its first minutes; null = nothing that may count. */
+  readonly missing: MissingAtFirst | null;
   /** Whether the plan until the start held at that point. */
   readonly held: Uint8Array;
   /** Certainty worth bidding; null = no prices. */
   readonly bid: number | null;
+}
+
+/** What the greatest flow leaves missing while the lids are swept. */
+export interface MissingAtFirst {
+  /** In the mean, from the first power until so long after it [J]. */
+  mean_J(after_s: number): number;
+  /** How long after the first power something may be missing [s]. */
+  readonly until_s: number;
+  /** Whether it counts, at each point. */
+  readonly counts: Uint8Array;
 }
 
 /** Net energy that is reached with a certainty, and what lies below it. */
@@ -72,7 +84,7 @@ const J_PER_MWH = 3.6e9;
 /**
  * What a discharge gives at each certainty from its first power on, as a whole and block by block.
  * What comes between the start and the first power is as commanded and told apart. The end alone is uncertain:
- * until it the unit gives what it is commanded, so that every energy is that of a time, grows with it,
+ * until it the unit gives what it is commanded, less the mean of what is missing in its first minutes, so that every energy is that of a time, grows with it,
  * and the energies of blocks at one certainty add up to that of the whole.
  */
 export function offerFigures(
@@ -90,7 +102,13 @@ export function offerFigures(
     const stop = run.stops_s[k] as number;
     return stop >= ends_s ? closes_s : Math.max(begins_s, stop);
   });
-  const energyAt = (to_s: number): number => energyBetween(pieces, begins_s, to_s) / J_PER_MWH;
+  const { missing } = run;
+  const counts = order.map((k) => missing?.counts[k] ?? 0);
+  const until_s = begins_s + (missing?.until_s ?? 0);
+  const energyAt = (to_s: number): number => {
+    const lacks_J = missing === null || to_s <= begins_s ? 0 : missing.mean_J(to_s - begins_s);
+    return Math.max(0, energyBetween(pieces, begins_s, to_s) - lacks_J) / J_PER_MWH;
+  };
   const ahead = pieces.filter((piece) => piece.to_s <= begins_s + 1e-6);
   const takes = ahead.filter((piece) => piece.power0_W + piece.power1_W < 0);
   const gives = ahead.filter((piece) => piece.power0_W + piece.power1_W > 0);
@@ -113,8 +131,8 @@ export function offerFigures(
     let jointly = 0;
     stops.forEach((stop, k) => {
       if (!runs || stop < to_s) return;
-      alone += 1 / stops.length;
-      if (held[k] === 1) jointly += 1 / stops.length;
+      if (counts[k] === 0 || from_s >= until_s) alone += 1 / stops.length;
+      if (held[k] === 1 && counts[k] === 0) jointly += 1 / stops.length;
     });
     const at = wanted.map((c) => energyWith(own, c));
     return {

@@ -5,7 +5,15 @@ import type { PlanContext } from './context.js';
 import type { Course } from './course.js';
 import type { OfferRoute } from './offerRoute.js';
 import { type Change, createOutlook, type Outlook } from './outlook.js';
-import { covarianceOf, type Marches, type PlanSpread, responseOf, ruleTimes } from './spread.js';
+import {
+  covarianceOf,
+  type Marches,
+  type PlanSpread,
+  type RuleTime,
+  responseOf,
+  ruleTimes,
+  startMargins,
+} from './spread.js';
 import { createTrunk, fromNow, type Trunk } from './trunk.js';
 
 /** Slower fronts are marched in longer steps, as far as they then travel no further in one. */
@@ -131,10 +139,19 @@ function partsOf(head: Command): { readonly run: Command; readonly rest: Command
   };
 }
 
+/** Times of all rules, and what may be missing in the first minutes of the run that is offered. */
+function timesOf({ command }: OfferRoute, course: Course): RuleTime[] {
+  const last = course.episodes.length - 1;
+  return [
+    ...ruleTimes(course),
+    ...startMargins(course, command).filter(({ episode }) => episode === last),
+  ];
+}
+
 /** Everything marched. */
 function wholly(model: UnitModel, { route, marches, base }: Marched): ResponseNode {
   const course = marches.best();
-  const times = ruleTimes(course);
+  const times = timesOf(route, course);
   const known: Marches = {
     ...marches,
     // The march without a change is at hand.
@@ -148,7 +165,7 @@ function wholly(model: UnitModel, { route, marches, base }: Marched): ResponseNo
 function between(model: UnitModel, one: Marched, nodes: readonly ResponseNode[]): ResponseNode {
   const at = Math.log(one.route.power_W);
   const course = blendCourse(nodes, at, one.base);
-  const times = course === null ? [] : ruleTimes(course);
+  const times = course === null ? [] : timesOf(one.route, course);
   const response = course === null ? null : blendResponse(nodes, at, course, times);
   if (course === null || response === null) return wholly(model, one);
   return { at, course, base: one.base, times, response };
@@ -167,7 +184,7 @@ function betweenStarts(
   );
   if (pair.length !== starts.length) return wholly(model, one);
   const course = blendCourse(pair, at_s, one.base);
-  const times = course === null ? [] : ruleTimes(course);
+  const times = course === null ? [] : timesOf(one.route, course);
   const response = course === null ? null : blendResponse(pair, at_s, course, times);
   if (course === null || response === null) return wholly(model, one);
   return { at: power, course, base: one.base, times, response };

@@ -1,11 +1,14 @@
+import { firstMinutes, LACK_MOST } from '../dispatch/firstMinutes.js';
 import { RULES } from '../dispatch/rollout.js';
-import type { EndCause, Quantiles } from '../estimate.js';
+import type { EndCause, FirstMinutes, Quantiles } from '../estimate.js';
 import type { PlanContext } from './context.js';
 import { worthBidding } from './newsvendor.js';
 import { distinct, type OffersAsk, requireOffers } from './offerAsk.js';
 import { type OfferBlock, type OfferFigures, offerFigures } from './offerFigures.js';
 import { offerMarches } from './offerMarches.js';
 import { type Limited, type OfferRoute, offerRoutes, type PlanLimited } from './offerRoute.js';
+import { begins, missingAtFirst } from './offerStart.js';
+import { sigmaOf } from './runFirstMinutes.js';
 import { breaksOf, type PlanSpread } from './spread.js';
 
 /** What ends an offered discharge: a stop rule, or what was commanded. */
@@ -34,6 +37,8 @@ export interface Offer extends OfferFigures {
   readonly plan_holds: number | null;
   /** Probability that the stores carry all of it that the machine can do; null where refused. */
   readonly plan_stores_hold: number | null;
+  /** Absent = nothing that counts is missing at first, with 90 % probability. */
+  readonly first_minutes?: FirstMinutes;
 }
 
 const J_PER_MWH = 3.6e9;
@@ -51,6 +56,8 @@ const J_PER_MWH = 3.6e9;
  * `jointly` that it is run through with all blocks before it and what the machine can do of the plan. One discharge without a plan
  * is cut short once and for all: who runs through a block has run through all before it, the two are
  * the same. After a plan they are not: its own runs may have failed and the block be given all the same.
+ * Where what is missing in the first minutes counts (`LACK_TOLD`), the block they are in is not run
+ * through; where more than `LACK_MOST` of the power is, the discharge does not begin.
  *
  * @param asked powers, starts and certainties asked for twice are answered once
  * @throws WrongQuestion (a RangeError) for what cannot be asked; see `requireOffers`
@@ -78,13 +85,24 @@ function offerOf(route: OfferRoute, spread: PlanSpread, ask: OffersAsk, bid: num
   const run = episodes[last];
   if (run === undefined) throw new RangeError('course: expected the run that is offered');
   const breaks = breaksOf(spread);
-  const stops_s = breaks.first_s[last] as Float64Array;
-  const { begins_s } = route;
+  const { begins_s, power_W } = route;
+  const start_W = breaks.start_W[last] ?? null;
+  const stops_s = (breaks.first_s[last] as Float64Array).map((stop_s, k) =>
+    start_W === null || begins(start_W[k] as number, power_W) ? stop_s : begins_s,
+  );
   if (Math.max(begins_s, run.from_s) >= run.first_s || stops_s.every((t) => t <= begins_s)) {
+    if (run.first_s > Math.max(begins_s, run.from_s)) {
+      const why = `flow: more than ${100 * LACK_MOST} % of the power is missing at first`;
+      return nothing({ ...route, refused: why }, bid, ask, { flow: 1 });
+    }
     const why = `empty: the rule ${run.ends_by} is broken as soon as it holds`;
     return nothing({ ...route, refused: why }, bid, ask, { [run.ends_by]: 1 });
   }
-  const rules = breaks.rule[last] as Int8Array;
+  const rules = (breaks.rule[last] as Int8Array).map((rule, k) =>
+    start_W === null || begins(start_W[k] as number, power_W) ? rule : RULES.indexOf('flow'),
+  );
+  const missing = start_W === null ? null : missingAtFirst(run.start, start_W, power_W);
+  const lack = start_W === null ? null : firstMinutes(run.start, power_W, sigmaOf(start_W));
   const held = new Uint8Array(stops_s.length).fill(1);
   episodes.slice(0, last).forEach((episode, e) => {
     breaks.first_s[e]?.forEach((stop, k) => {
@@ -99,7 +117,7 @@ function offerOf(route: OfferRoute, spread: PlanSpread, ask: OffersAsk, bid: num
   const { start_s, ends_s, closes_s } = route;
   const { pieces } = route.command;
   const figures = offerFigures(
-    { start_s, begins_s, ends_s, closes_s, pieces, stops_s, held, bid },
+    { start_s, begins_s, ends_s, closes_s, pieces, stops_s, missing, held, bid },
     ask.block_s,
     ask.certainties,
   );
@@ -110,6 +128,7 @@ function offerOf(route: OfferRoute, spread: PlanSpread, ask: OffersAsk, bid: num
     ends_by,
     plan_holds: route.planLimited.length > 0 ? 0 : plan_stores_hold,
     plan_stores_hold,
+    ...(lack === null ? {} : { first_minutes: lack.told }),
   };
 }
 

@@ -1,3 +1,4 @@
+import { lackBetween, leastMargin } from '../dispatch/firstMinutes.js';
 import type { Piece } from './command.js';
 import type { DeratedShare, Episode } from './episode.js';
 import type { Evaluation } from './evaluation.js';
@@ -14,7 +15,8 @@ export interface RunEnergy {
  * Energy of a run of an evaluated command.
  *
  * Where the greatest flow comes first the power falls off as in the march (`Episode.shares`), counted
- * from the moment at which that flow is first needed, and the unit stops below its least power.
+ * from the moment at which that flow is first needed, and the unit stops below its least power. What is
+ * missing in the first minutes (`Episode.start`) is taken off besides.
  *
  * @param least_W least power of this direction
  */
@@ -37,7 +39,21 @@ export function runEnergy(evaluation: Evaluation, e: number, least_W: number): R
   const derate = evaluation.derate_s[e] as Float64Array;
   const commanded = (from_s: number, to_s: number): number =>
     to_s > from_s ? cumulative(to_s) - cumulative(from_s) : 0;
+  const start_W = evaluation.start_W[e] ?? null;
+  const { start, from_s: begins_s } = episode;
+  const least_margin_W = leastMargin(start);
+  const swept_s = begins_s + (start[start.length - 1]?.t_s ?? 0);
+  /** Missing at first, until the lids are swept or the run has ended. */
+  const lacking = (k: number, from_s: number, to_s: number): number => {
+    if (start_W === null || from_s >= swept_s) return 0;
+    const shift_W = (start_W[k] as number) - least_margin_W;
+    return lackBetween(start, shift_W, from_s - begins_s, to_s - begins_s);
+  };
   const delivered = (k: number, from_s: number, to_s: number): number => {
+    const end_s = Math.min(to_s, stop[k] as number);
+    return Math.max(0, held(k, from_s, to_s) - lacking(k, from_s, end_s));
+  };
+  const held = (k: number, from_s: number, to_s: number): number => {
     const less_s = derate[k] as number;
     const end = Math.min(to_s, stop[k] as number, less_s + lasts_s);
     if (!(end > from_s)) return 0;

@@ -1,5 +1,5 @@
 import type { Mode } from '../definitions.js';
-import type { EndCause } from '../estimate.js';
+import type { EndCause, FirstMinutes } from '../estimate.js';
 import { type BlockFigures, blockFigures, runEnergies } from './blockFigures.js';
 import { chargesAhead } from './chargeAhead.js';
 import { edgesOf, MOST_POINTS, marksOf, thinned, withStops } from './chargePoints.js';
@@ -11,6 +11,7 @@ import { writtenIn } from './localTime.js';
 import { type NearestLegs, type NearestReason, nearestLegs } from './nearest.js';
 import { type NetEnergy, netEnergy } from './netEnergy.js';
 import { createPlanner } from './planner.js';
+import { firstMinutesOf } from './runFirstMinutes.js';
 import { requireSchedule, type ScheduleAsk } from './scheduleAsk.js';
 import { firstShortfall, storesShortfall } from './shortfall.js';
 import { watchedMarches } from './watchedMarches.js';
@@ -49,6 +50,8 @@ export interface RunView {
   readonly ends_by: EndCause | null;
   /** When it stops on the most likely course; null = it does not. */
   readonly stops: string | null;
+  /** Absent = nothing that counts is missing at first, with 90 % probability. */
+  readonly first_minutes?: FirstMinutes;
 }
 
 export interface ChargeView {
@@ -193,19 +196,20 @@ export function scheduleOf(context: PlanContext, ask: ScheduleAsk): Schedule {
 
 function runView(evaluation: Evaluation, e: number, written: (t_s: number) => string): RunView {
   const episode = evaluation.course.episodes[e] as Course['episodes'][number];
-  const first_s = evaluation.first_s[e] as Float64Array;
+  const breaks_s = evaluation.breaks_s[e] as Float64Array;
   const reserve = (certainty: number): number | null => {
-    const hours = (exceeded(first_s, certainty) - episode.held_s) / 3600;
+    const hours = (exceeded(breaks_s, certainty) - episode.held_s) / 3600;
     return hours < evaluation.beyond_s / 3600 ? hours : null;
   };
   return {
     mode: episode.direction,
     from: written(episode.from_s),
     to: written(episode.held_s),
-    probability: holding([episode], [first_s]),
+    probability: holding([episode], [evaluation.first_s[e] as Float64Array]),
     reserve_hours: { p90: reserve(0.9), p50: reserve(0.5), p10: reserve(0.1) },
     ends_by: Number.isFinite(episode.first_s) ? episode.ends_by : null,
     stops: episode.stopped_s === null ? null : written(episode.stopped_s),
+    ...firstMinutesOf(evaluation, e),
   };
 }
 

@@ -1,5 +1,6 @@
 import type { Direction } from '../definitions.js';
 import { cholesky } from '../dispatch/earliestQuantiles.js';
+import { leastMargin, lidSigma } from '../dispatch/firstMinutes.js';
 import { MODEL_SIGMA } from '../dispatch/hours.js';
 import { addProfile, type StoreResponse } from '../dispatch/profileCovariance.js';
 import { BUMP_K, BUMPS } from '../dispatch/roller.js';
@@ -24,6 +25,8 @@ export interface RuleTime {
   readonly time_s: number;
   /** When the rule is closest to breaking, or beyond it by most [s]; absent = this is a time. */
   readonly closest_s?: number;
+  /** The margin is the least until the lids are swept, which breaks no rule; see `startMargins`. */
+  readonly start?: boolean;
 }
 
 /** Where the rules of a plan's runs stand, and how surely: jointly Gaussian. */
@@ -73,7 +76,7 @@ export function spreadOf(outlook: Outlook, command: Command): PlanSpread {
     marchFine: (change) => outlook.marchFine(command, change),
   };
   const course = marches.best();
-  const times = ruleTimes(course);
+  const times = [...ruleTimes(course), ...startMargins(course, command)];
   const response = responseOf(outlook.model, marches, times);
   return { course, times, covariance: covarianceOf(outlook, command, course, times, response) };
 }
@@ -106,6 +109,21 @@ export function closestFlows(course: Course, command: Command): RuleTime[] {
   });
 }
 
+/**
+ * Least margins of the first minutes, where they are near to 0 or below: how much is missing until the
+ * lids are swept. A run whose power is not had after that either breaks the rule itself.
+ */
+export function startMargins(course: Course, command: Command): RuleTime[] {
+  return course.episodes.flatMap((episode, e): RuleTime[] => {
+    const { start, from_s, to_s } = episode;
+    const last = start[start.length - 1]?.margin_W ?? -1;
+    const margin_W = leastMargin(start);
+    if (last < 0 || !(margin_W < NEAR * powerAbout(command, from_s, to_s))) return [];
+    const own = { episode: e, rule: FLOW, cause: 'flow', time_s: margin_W } as const;
+    return [{ ...own, closest_s: from_s, start: true }];
+  });
+}
+
 /** Slopes of the given times, from marches that differ in one thing each. */
 export function responseOf(
   model: UnitModel,
@@ -121,6 +139,7 @@ export function responseOf(
   }
   const at = (of: Course, q: RuleTime): number => {
     const episode = of.episodes[q.episode];
+    if (q.start && episode !== undefined) return leastMargin(episode.start);
     const value = q.closest_s === undefined ? episode?.times_s[q.rule] : episode?.closest.margin_W;
     return value as number;
   };
@@ -178,6 +197,7 @@ export function covarianceOf(
           sum += (factors[k]?.[i] as number) * (factors[l]?.[j] as number) * value;
         });
       });
+      if (i === j && a.start) sum += lidSigma(course.episodes[a.episode]?.start ?? []) ** 2;
       (covariance[i] as Float64Array)[j]! += sum;
     });
   });
@@ -247,13 +267,16 @@ export interface Breaks {
   readonly first_s: readonly Float64Array[];
   /** Index in `RULES`; -1 where nothing breaks. */
   readonly rule: readonly Int8Array[];
+  /** Least margin of the first minutes [W]; null = nothing near to missing. */
+  readonly start_W: readonly (Float64Array | null)[];
 }
 
 /**
  * Rules' times over fixed points of their joint distribution.
  *
  * @returns per time of `spread.times`, `NORMAL_COUNT` values [s], none before its run begins, Infinity
- *   where a closest approach breaks nothing; points of the same index belong together
+ *   where a closest approach breaks nothing, and of `start` the margin itself [W]; points of the same
+ *   index belong together
  */
 export function ruleSamples(spread: PlanSpread): Float64Array[] {
   const { times, covariance, course } = spread;
@@ -267,7 +290,8 @@ export function ruleSamples(spread: PlanSpread): Float64Array[] {
       const column = points[b] as Float64Array;
       for (let k = 0; k < NORMAL_COUNT; k++) own[k]! += weight * (column[k] as number);
     }
-    const { closest_s } = q;
+    const { closest_s, start } = q;
+    if (start) return own;
     if (closest_s !== undefined) {
       return own.map((margin_W) => (margin_W < 0 ? closest_s : Number.POSITIVE_INFINITY));
     }
@@ -290,8 +314,13 @@ export function breaksOf(spread: PlanSpread): Breaks {
   const { episodes } = spread.course;
   const first_s = episodes.map(() => new Float64Array(NORMAL_COUNT).fill(Number.POSITIVE_INFINITY));
   const rule = episodes.map(() => new Int8Array(NORMAL_COUNT).fill(-1));
+  const start_W: (Float64Array | null)[] = episodes.map(() => null);
   ruleSamples(spread).forEach((samples, a) => {
     const q = spread.times[a] as RuleTime;
+    if (q.start) {
+      start_W[q.episode] = samples;
+      return;
+    }
     const own = first_s[q.episode] as Float64Array;
     const which = rule[q.episode] as Int8Array;
     samples.forEach((value, k) => {
@@ -300,5 +329,5 @@ export function breaksOf(spread: PlanSpread): Breaks {
       which[k] = q.rule;
     });
   });
-  return { first_s, rule };
+  return { first_s, rule, start_W };
 }

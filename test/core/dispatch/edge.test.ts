@@ -18,11 +18,22 @@ function withFlowMost(flow_max_kg_s: number): UnitDefinition {
   return unitOf({ limits: { ...limits, discharge: { ...limits.discharge, flow_max_kg_s } } });
 }
 
-/** The flow that the power takes at the first test of the rules [kg/s]. */
+/** Greatest flow at which the estimate just begins [kg/s]: its power at the first test is the power asked. */
 function firstFlow(): number {
-  const of = withFlowMost(100);
-  const { first_margins } = createRoller(inputOf(of, watchedUnit(of, FRONTS, 30)), POWER).best();
-  return 100 - (first_margins[2] as number);
+  const marginAt = (flow: number): number => {
+    const of = withFlowMost(flow);
+    const roller = createRoller(inputOf(of, watchedUnit(of, FRONTS, 30)), POWER);
+    return roller.best().first_margins[2] as number;
+  };
+  // By bisection: part load bends the margin.
+  let low = 0.01;
+  let high = 10;
+  for (let i = 0; i < 24; i++) {
+    const middle = (low + high) / 2;
+    if (marginAt(middle) > 0) high = middle;
+    else low = middle;
+  }
+  return high;
 }
 
 /** Answer and sampled plants of a unit, sorted [h]. */

@@ -11,6 +11,21 @@ export const quantilesSchema = z
   .object({ p90: z.number(), p50: z.number(), p10: z.number() })
   .describe('Exceeded with 90, 50 and 10 % probability; p90 is the firm figure');
 
+export const firstMinutesSchema = z
+  .object({
+    probability: z
+      .number()
+      .describe('That more than 0.5 % of the energy of the first quarter of an hour is missing'),
+    lacking_MW: z.number().describe('Missing at its most, likeliest'),
+    lacking_at_worst_MW: z.number().describe('The same, not exceeded with 90 % probability'),
+    minutes: z.number().describe('Until the power asked is had, likeliest'),
+    lacking_MWh_el: z.number().describe('Energy missing, likeliest'),
+  })
+  .optional()
+  .describe(
+    'What the greatest flow leaves missing of the power while gas that stood is pushed out, 10 minutes at most; absent: nothing that counts, with 90 % probability',
+  );
+
 export const dispatchAnswerSchema = z.object({
   power_MW: z.number().describe('Net electrical power at the connection point [MW]'),
   hours: quantilesSchema,
@@ -20,6 +35,7 @@ export const dispatchAnswerSchema = z.object({
     .enum(COMMAND_CAUSES)
     .nullable()
     .describe('What keeps the unit from this power at some time within p10; null: nothing does'),
+  first_minutes: firstMinutesSchema,
 });
 
 export const dispatchSchema = z.object({

@@ -1,7 +1,7 @@
 import { z } from 'zod';
 import { COMMAND_CAUSES } from '../../../core/plan/leg.js';
 import { UNTESTED } from '../../../core/plan/offerReport.js';
-import { timeSchema } from './estimate.js';
+import { firstMinutesSchema, timeSchema } from './estimate.js';
 import { answerHead, quantilesSchema } from './plan.js';
 
 /** Schemas of offer tables, of those kept, and of their report. */
@@ -60,6 +60,7 @@ const offerSchema = z.object({
   mean_hours: z.number(),
   mean_MWh_el: z.number(),
   ends_by: shares.describe('Probability of each cause that may end it'),
+  first_minutes: firstMinutesSchema,
   at: z.array(z.object({ ...energyAt, hours: z.number(), whole_blocks: twoWays(z.int()) })),
   bid: z
     .object({ certainty: z.number(), energy_MWh_el: z.number() })

@@ -1,7 +1,7 @@
 import { z } from 'zod';
 import { END_CAUSES, QUALITIES } from '../../../core/estimate.js';
 import { COMMAND_CAUSES } from '../../../core/plan/leg.js';
-import { timeSchema } from './estimate.js';
+import { firstMinutesSchema, timeSchema } from './estimate.js';
 import { limitsSchema } from './limits.js';
 import { hoursQuery } from './questions.js';
 
@@ -53,6 +53,7 @@ export const headroomSchema = z.object({
         .describe(
           'A rule of the outlets or the pressure drop; flow: its greatest flow takes less than the least power. null: nothing within the time looked ahead',
         ),
+      first_minutes: firstMinutesSchema,
       derated_after_hours: z
         .number()
         .nullable()

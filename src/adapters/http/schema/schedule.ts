@@ -8,7 +8,7 @@ import {
   MODES,
   MOST_BLOCKS,
 } from '../../../core/plan/scheduleAsk.js';
-import { timeSchema } from './estimate.js';
+import { firstMinutesSchema, timeSchema } from './estimate.js';
 import { answerHead, staleField } from './plan.js';
 import { GREATEST_POWER_MW, historyQuery } from './questions.js';
 
@@ -163,6 +163,7 @@ export const scheduleSchema = z.object({
         .describe('Past its end, below 0 it falls short; null: more than reserve_looked_hours'),
       ends_by: z.enum(END_CAUSES).nullable(),
       stops: timeSchema.nullable().describe('On the most likely course; null: it does not'),
+      first_minutes: firstMinutesSchema,
     }),
   ),
   reserve_looked_hours: z.number(),
