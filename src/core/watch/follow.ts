@@ -151,3 +151,14 @@ export function followed(state: FollowState, rule: FollowRule): Followed {
     reason: at >= 0 ? null : !known ? 'not_exercised' : learning ? 'learning' : null,
   };
 }
+
+/**
+ * State of one subject, made where there is none: ids may change with the configuration, so a saved
+ * state need not know them.
+ */
+export function heldOf<S>(states: Record<string, S>, subject: string, fresh: () => S): S {
+  if (Object.hasOwn(states, subject)) return states[subject] as S;
+  const made = fresh();
+  states[subject] = made;
+  return made;
+}

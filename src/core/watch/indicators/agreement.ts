@@ -1,4 +1,4 @@
-import type { StoreModel } from '../../track/storeTracker.js';
+import { heldOf } from '../follow.js';
 import type { Indicator, IndicatorRule, IndicatorView } from '../indicator.js';
 
 interface StringSeen {
@@ -16,20 +16,14 @@ interface StringSeen {
  */
 export const AGREEMENT: Indicator<Record<string, StringSeen>> = {
   kind: 'front_view',
-  start: (model) =>
-    Object.fromEntries(
-      subjectsOf(model.stores).map((subject) => [
-        subject,
-        { degraded: false, time_ms: null, value: null },
-      ]),
-    ),
+  start: () => ({}),
   step(states, rule, _, input) {
     return input.model.stores.flatMap((model): IndicatorView[] => {
       const { id } = model.store;
       const views = input.estimate.stores[id]?.front_views ?? [];
       return model.tubes.map(({ string, layout }) => {
         const subject = `${id}/${string.id}`;
-        const state = states[subject] as StringSeen;
+        const state = heldOf(states, subject, startHeld);
         const shown = views.find((view) => view.id === string.id);
         if (shown?.seen && shown.disagreement !== null) {
           state.time_ms = input.time_ms;
@@ -44,9 +38,7 @@ export const AGREEMENT: Indicator<Record<string, StringSeen>> = {
   },
 };
 
-function subjectsOf(stores: readonly StoreModel[]): string[] {
-  return stores.flatMap(({ store, tubes }) => tubes.map((t) => `${store.id}/${t.string.id}`));
-}
+const startHeld = (): StringSeen => ({ degraded: false, time_ms: null, value: null });
 
 function view(
   subject: string,

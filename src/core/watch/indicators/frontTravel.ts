@@ -8,6 +8,7 @@ import {
   type FollowState,
   follow,
   followed,
+  heldOf,
   startFollow,
 } from '../follow.js';
 import type {
@@ -30,8 +31,6 @@ interface StoreFollow {
   readonly follow: FollowState;
   /** What the present run's heat balance says so far. */
   run: RunSoFar | null;
-  /** Of the runs taken. */
-  runs: number;
 }
 
 /**
@@ -52,25 +51,23 @@ const RUN_EVERY_S = 6 * 3600;
  */
 export const FRONT_TRAVEL: Indicator<Record<string, StoreFollow>> = {
   kind: 'front_travel',
-  start: (model) =>
-    Object.fromEntries(
-      model.stores.map(({ store }) => [store.id, { follow: startFollow(2), run: null, runs: 0 }]),
-    ),
+  start: () => ({}),
   step(states, rule, watching, input) {
     const stores = input.model.stores.map((model, s) => {
-      const state = states[model.store.id] as StoreFollow;
+      const state = heldOf(states, model.store.id, startHeld);
       const rules = followRule(model, rule, watching);
       const ended = followRun(state, input.state.balances[s] as HeatBalance, input.time_ms);
       if (ended !== null) {
         const sigma = Math.hypot(Math.sqrt(ended.variance), RUN_SIGMA);
         follow(state.follow, { value: ended.log, sigma }, ended.time_ms, rules);
-        state.runs++;
       }
       return { model, state: state.follow, result: followed(state.follow, rules) };
     });
     return stores.map((one) => view(one, stores, rule));
   },
 };
+
+const startHeld = (): StoreFollow => ({ follow: startFollow(2), run: null });
 
 /** The run that has just ended, if it told anything; one whose balance was dropped tells nothing. */
 function followRun(state: StoreFollow, balance: HeatBalance, time_ms: number): RunSoFar | null {

@@ -1,5 +1,12 @@
 import type { StoreModel, StoreState } from '../../track/storeTracker.js';
-import { type FollowRule, type FollowState, follow, followed, startFollow } from '../follow.js';
+import {
+  type FollowRule,
+  type FollowState,
+  follow,
+  followed,
+  heldOf,
+  startFollow,
+} from '../follow.js';
 import type {
   Indicator,
   IndicatorRule,
@@ -12,6 +19,7 @@ import {
   NEWS_EVERY_S,
   type NewsState,
   newsOf,
+  scanOf,
   startNews,
   tubeFigures,
 } from './news.js';
@@ -44,30 +52,30 @@ const BASELINE = { floor: 0.04, enough: 0.06, least: 4 };
  */
 export const HEAT_TRANSFER: Indicator<Record<string, StoreFollow>> = {
   kind: 'heat_transfer',
-  start: (model) =>
-    Object.fromEntries(
-      model.stores.map(({ store }) => [
-        store.id,
-        { news: startNews(), follow: startFollow(1), adapt: 1 },
-      ]),
-    ),
+  start: () => ({}),
   step(states, rule, watching, input) {
     return input.model.stores.map((model, s): IndicatorView => {
       const { id } = model.store;
-      const state = states[id] as StoreFollow;
+      const state = heldOf(states, id, startHeld);
       const store = input.state.stores[s] as StoreState;
       const now = meanTransfer(model, store);
-      const moving = input.taken.conditions.flow_kg_s !== 0 && store.started;
-      const front = (input.estimate.stores[id]?.fronts.length ?? 0) > 0;
+      const moving = input.taken.conditions.flow_kg_s !== 0;
       const walk = moving ? (state.adapt * WALK_PER_SQRT_H) ** 2 * (input.dt_s / 3600) : 0;
       const rules = followRule(model, rule, watching);
-      const news = newsOf(state.news, now, walk, input.dt_s, moving && front);
+      const scan = { ...scanOf(input, s), walk, dt_s: input.dt_s };
+      const news = newsOf(state.news, now, scan);
       state.adapt = adaptOf(model, store);
       if (news !== null) follow(state.follow, news, input.time_ms, rules);
       return view(model, state.follow, now, rule, rules);
     });
   },
 };
+
+const startHeld = (): StoreFollow => ({
+  news: startNews(),
+  follow: startFollow(1),
+  adapt: 1,
+});
 
 function followRule(
   model: StoreModel,

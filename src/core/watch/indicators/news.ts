@@ -1,5 +1,6 @@
 import type { StoreModel, StoreState } from '../../track/storeTracker.js';
 import type { TubeState } from '../../track/tube.js';
+import type { IndicatorInput } from '../indicator.js';
 import { newInformation } from '../sequential.js';
 
 /** A figure of the filter and its sigma. */
@@ -23,34 +24,58 @@ export function startNews(): NewsState {
   return { before: null, walkVariance: 0, flow_s: 0 };
 }
 
+/** What one scan means for the news of a figure. */
+export interface NewsScan {
+  /** Variance that the filter itself has added to the figure in this scan. */
+  readonly walk: number;
+  readonly dt_s: number;
+  /** Whether this scan moved a front through the bed. */
+  readonly flowing: boolean;
+  /** False where the filter was lost or its flow is a guess: what it learns then is not of the plant. */
+  readonly sound: boolean;
+}
+
+/** A filter that knows this much less than its own walk explains has been started anew. */
+const FORGOTTEN = 1.5;
+
 /**
  * What is new in a figure of the filter: one independent value about once an hour of flow, made of
  * what the filter has learned since the last one (see newInformation). Where it has learned next to
- * nothing, as without a front in the bed, the value waits and its walk adds up.
+ * nothing, as without a front in the bed, the value waits and its walk adds up. After a scan that is not
+ * sound, and where the filter has forgotten, it begins anew.
  *
  * @param state changed in place
- * @param walk variance that the filter itself has added to the figure in this scan
- * @param flowing whether this scan moved a front through the bed
  */
-export function newsOf(
-  state: NewsState,
-  now: Known,
-  walk: number,
-  dt_s: number,
-  flowing: boolean,
-): Known | null {
-  if (state.before === null) {
-    state.before = { ...now };
+export function newsOf(state: NewsState, now: Known, scan: NewsScan): Known | null {
+  const { before } = state;
+  const walked = state.walkVariance + scan.walk;
+  if (before === null || !scan.sound || now.sigma ** 2 > FORGOTTEN * (before.sigma ** 2 + walked)) {
+    Object.assign(state, startNews(), { before: scan.sound ? { ...now } : null });
     return null;
   }
-  state.walkVariance += walk;
-  if (!flowing) return null;
-  state.flow_s += dt_s;
+  state.walkVariance = walked;
+  if (!scan.flowing) return null;
+  state.flow_s += scan.dt_s;
   if (state.flow_s < NEWS_EVERY_S) return null;
-  const news = newInformation(state.before, now, state.walkVariance);
+  const news = newInformation(before, now, state.walkVariance);
   if (news === null) return null;
-  Object.assign(state, { before: { ...now }, walkVariance: 0, flow_s: 0 });
+  Object.assign(state, startNews(), { before: { ...now } });
   return news;
+}
+
+/** What a scan was for the tubes of a store. */
+export function scanOf(input: IndicatorInput, s: number): { flowing: boolean; sound: boolean } {
+  const { conditions, stores } = input.taken;
+  const { id } = (input.model.stores[s] as StoreModel).store;
+  const moving = conditions.flow_kg_s !== 0;
+  const step = stores[s]?.step;
+  return {
+    flowing: moving && (input.estimate.stores[id]?.fronts.length ?? 0) > 0,
+    sound:
+      (step === 'updated' || step === 'predicted') &&
+      conditions.flowKnown &&
+      !conditions.flowStandIn,
+  };
 }
 
 /** Further state of a tube by its index in the layout, and an element of its covariance. */

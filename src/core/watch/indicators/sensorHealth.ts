@@ -1,3 +1,4 @@
+import { heldOf } from '../follow.js';
 import type { Indicator, IndicatorView } from '../indicator.js';
 
 /**
@@ -7,11 +8,10 @@ import type { Indicator, IndicatorView } from '../indicator.js';
  */
 export const SENSOR_HEALTH: Indicator<Record<string, { degraded: boolean }>> = {
   kind: 'sensor_health',
-  start: (model) =>
-    Object.fromEntries(model.stores.map(({ store }) => [store.id, { degraded: false }])),
+  start: () => ({}),
   step(states, rule, _, input) {
     return input.model.stores.map(({ store, tubes }): IndicatorView => {
-      const state = states[store.id] as { degraded: boolean };
+      const state = heldOf(states, store.id, () => ({ degraded: false }));
       const all = tubes.reduce((sum, tube) => sum + tube.layout.sensors, 0);
       const started = input.estimate.stores[store.id]?.fronts_reason !== 'not_started';
       const rejected = input.estimate.stores[store.id]?.sensors.rejected ?? [];

@@ -1,5 +1,12 @@
 import type { StoreModel } from '../../track/storeTracker.js';
-import { type FollowRule, type FollowState, follow, followed, startFollow } from '../follow.js';
+import {
+  type FollowRule,
+  type FollowState,
+  follow,
+  followed,
+  heldOf,
+  startFollow,
+} from '../follow.js';
 import type {
   Indicator,
   IndicatorRule,
@@ -37,17 +44,11 @@ const WIDTH_PER_TRANSFER = 0.5;
  */
 export const SPREAD: Indicator<Record<string, StoreFollow>> = {
   kind: 'spread_ratio',
-  start: (model) =>
-    Object.fromEntries(
-      model.stores.map(({ store }) => [
-        store.id,
-        { follow: startFollow(1), travelled_m: 0, way_m: 0 },
-      ]),
-    ),
+  start: () => ({}),
   step(states, rule, watching, input) {
     return input.model.stores.map((model, s): IndicatorView => {
       const { id } = model.store;
-      const state = states[id] as StoreFollow;
+      const state = heldOf(states, id, startHeld);
       const travelled = input.state.views[s]?.twin.travelled_m ?? 0;
       // Counted anew by the twin where a front has left it.
       state.way_m += travelled >= state.travelled_m ? travelled - state.travelled_m : travelled;
@@ -63,6 +64,8 @@ export const SPREAD: Indicator<Record<string, StoreFollow>> = {
     });
   },
 };
+
+const startHeld = (): StoreFollow => ({ follow: startFollow(1), travelled_m: 0, way_m: 0 });
 
 /** Mean distance of the thermocouples on the string that has most [m]. */
 function pitchOf({ store, tubes }: StoreModel): number {

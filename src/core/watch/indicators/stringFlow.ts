@@ -5,6 +5,7 @@ import {
   type FollowState,
   follow,
   followed,
+  heldOf,
   startFollow,
 } from '../follow.js';
 import type {
@@ -19,6 +20,7 @@ import {
   NEWS_EVERY_S,
   type NewsState,
   newsOf,
+  scanOf,
   startNews,
   tubeFigures,
 } from './news.js';
@@ -48,37 +50,31 @@ const BASELINE = { floor: 0.007, enough: 0.012, least: 6 };
  */
 export const STRING_FLOW: Indicator<Record<string, StringFollow>> = {
   kind: 'string_flow',
-  start: (model) =>
-    Object.fromEntries(
-      model.stores.flatMap(({ store, tubes }) =>
-        tubes.map(({ string }) => [
-          `${store.id}/${string.id}`,
-          { news: startNews(), follow: startFollow(2) },
-        ]),
-      ),
-    ),
+  start: () => ({}),
   step(states, rule, watching, input) {
     const rules = followRule(rule, watching);
-    const flowing = input.taken.conditions.flow_kg_s !== 0;
+    const moving = input.taken.conditions.flow_kg_s !== 0;
     return input.model.stores.flatMap((model, s): IndicatorView[] => {
       const { id } = model.store;
       const store = input.state.stores[s] as StoreState;
       if (model.tubes.length < 2) return [alone(model, rule, rules)];
-      const moving = flowing && store.started;
-      const front = (input.estimate.stores[id]?.fronts.length ?? 0) > 0;
       const shares = sharesOf(model, store);
+      const scan = { ...scanOf(input, s), dt_s: input.dt_s };
       const strings = model.tubes.map(({ string }, k) => {
-        const state = states[`${id}/${string.id}`] as StringFollow;
-        const { now, walk } = shares[k] as StringShare;
-        const grown = moving ? walk * (input.dt_s / 3600) : 0;
-        const news = newsOf(state.news, now, grown, input.dt_s, moving && front);
+        const state = heldOf(states, `${id}/${string.id}`, startHeld);
+        const share = shares[k] as StringShare;
+        const walk = moving ? share.walk * (input.dt_s / 3600) : 0;
+        const news = newsOf(state.news, share.now, { ...scan, walk });
         if (news !== null) follow(state.follow, news, input.time_ms, rules);
-        return { name: string.id, state: state.follow, now, result: followed(state.follow, rules) };
+        const result = followed(state.follow, rules);
+        return { name: string.id, state: state.follow, now: share.now, result };
       });
       return strings.map((one) => view(id, one, strings, rule));
     });
   },
 };
+
+const startHeld = (): StringFollow => ({ news: startNews(), follow: startFollow(2) });
 
 function followRule(rule: IndicatorRule, watching: IndicatorsDefinition): FollowRule {
   return {
