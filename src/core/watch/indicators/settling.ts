@@ -1,0 +1,299 @@
+import type { StoreEnd } from '../../definitions.js';
+import type { StoreModel, StoreState } from '../../track/storeTracker.js';
+import type {
+  Indicator,
+  IndicatorInput,
+  IndicatorReason,
+  IndicatorRule,
+  IndicatorsDefinition,
+  IndicatorView,
+} from '../indicator.js';
+import { decisionAt, stepSequential } from '../sequential.js';
+import { type Followed, shownAs, startFollowed } from './shown.js';
+import { copyBeds, rockAt, type StandingBeds, standOn } from './standingModel.js';
+
+/** So many of the topmost thermocouples of each string are tested. */
+const TESTED = 2;
+/** Junctions and gas settle first; then means over this long are compared [s]. */
+const SETTLE_S = 600;
+const MEAN_S = 600;
+/** Gas and rock must have moved apart by this, or a reading tells nothing of which it follows [K]. */
+const APART_K = 5;
+/**
+ * One sigma of how far a reading's change is from that of gas or rock: thermowells of up to 3 min while
+ * the gas cools by 0.2 K a minute, noise, what the model makes wrong of rock near the lid [K].
+ */
+const CHANGE_K = 0.8;
+/** Share of the gas's movement that a covered junction just below the surface may show. */
+const COVERED = 0.2;
+const SHARE_SIGMA = 0.15;
+/** A topmost thermocouple deeper than this tells of the bed's level late, if at all [m]. */
+const DEEP_M = 0.3;
+
+interface Top {
+  readonly tube: number;
+  readonly sensor: number;
+  readonly followed: Followed;
+  sum_K: number;
+  /** Reading, gas and rock that changes are counted from [K]; null = none. */
+  from: { readonly read_K: number; readonly gas_K: number; readonly rock_K: number } | null;
+}
+
+interface Level {
+  stood_s: number;
+  mean_s: number;
+  scans: number;
+  gas_K: number;
+  beds: StandingBeds | null;
+  readonly tops: Top[];
+}
+
+export interface SettlingState {
+  readonly stores: Level[];
+}
+
+/**
+ * How far the bed has sunk, by thermocouples that hang in gas. While the unit stands, the gas under the
+ * lid cools or warms with the lid's steel, by 10 K and more in a hot store, and the rock below hardly at
+ * all. Whenever gas and rock have moved apart by 5 K, the share
+ *
+ *   s = (reading's change - rock's change) / (gas's change - rock's change)
+ *
+ * is one value of each topmost thermocouple's test: about 0 in rock, 1 in gas. Constant offsets cancel.
+ * Thermocouples that the judgement calls `uncovered` count as well.
+ */
+export const SETTLING: Indicator<SettlingState> = {
+  kind: 'settling',
+  start: (model) => ({ stores: model.stores.map(startLevel) }),
+  step(state, rule, watching, input) {
+    return input.model.stores.map((store, s) => {
+      const level = state.stores[s] as Level;
+      const gas = gasAbove(store, input);
+      if (gas >= 0) follow(level, store, s, gas, watching, input);
+      return view(level, store, input.state.stores[s] as StoreState, gas, rule);
+    });
+  },
+};
+
+const topEnd = ({ store }: StoreModel): StoreEnd =>
+  store.charge_inlet_at === 'top' ? 'charge_inlet' : 'discharge_inlet';
+
+/** Channel of the gas above the bed, -1 = none. */
+const gasAbove = (store: StoreModel, { model }: IndicatorInput): number =>
+  model.map.gas[store.store.id]?.[topEnd(store)] ?? -1;
+
+/** Depth of a position below the bed's top [m]. */
+const depthOf = ({ store }: StoreModel, position_m: number): number =>
+  store.charge_inlet_at === 'top' ? position_m : store.bed.length_m - position_m;
+
+/** Sensors of a string from the top down, with their depths. */
+function fromTop(model: StoreModel, k: number): { sensor: number; depth_m: number }[] {
+  const { string } = model.tubes[k] as StoreModel['tubes'][number];
+  return string.thermocouples
+    .map(({ position_m }, sensor) => ({ sensor, depth_m: depthOf(model, position_m) }))
+    .sort((a, b) => a.depth_m - b.depth_m);
+}
+
+function startLevel(model: StoreModel): Level {
+  const tops = model.tubes.flatMap((_, tube) =>
+    fromTop(model, tube)
+      .slice(0, TESTED)
+      .map(
+        ({ sensor }): Top => ({
+          tube,
+          sensor,
+          followed: startFollowed(),
+          sum_K: 0,
+          from: null,
+        }),
+      ),
+  );
+  return { ...noRest(), tops };
+}
+
+const noRest = (): Omit<Level, 'tops'> => ({
+  stood_s: 0,
+  mean_s: 0,
+  scans: 0,
+  gas_K: 0,
+  beds: null,
+});
+
+function follow(
+  level: Level,
+  model: StoreModel,
+  s: number,
+  gas: number,
+  watching: IndicatorsDefinition,
+  { state, taken, dt_s, time_ms }: IndicatorInput,
+): void {
+  const { conditions, scan } = taken;
+  const store = state.stores[s] as StoreState;
+  const stands = conditions.mode === 'stand' && conditions.flow_kg_s === 0 && conditions.flowKnown;
+  const read = scan.values[gas] as number;
+  if (!stands || !store.started || dt_s > MEAN_S) {
+    if (level.stood_s > 0) restart(level);
+    return;
+  }
+  level.stood_s += dt_s;
+  if (level.stood_s < SETTLE_S) return;
+  level.beds ??= copyBeds(model, store);
+  level.mean_s += dt_s;
+  if (Number.isFinite(read)) {
+    level.scans++;
+    level.gas_K += read;
+    for (const top of level.tops)
+      top.sum_K += scan.values[model.channels[top.tube]?.[top.sensor] as number] as number;
+  }
+  if (level.mean_s < MEAN_S) return;
+  standOn(model, 'as_configured', level.beds, conditions.ambient_K, level.mean_s);
+  if (level.scans > 0) compare(level, model, watching, time_ms);
+  level.mean_s = 0;
+  level.scans = 0;
+  level.gas_K = 0;
+  for (const top of level.tops) top.sum_K = 0;
+}
+
+function restart(level: Level): void {
+  Object.assign(level, noRest());
+  for (const top of level.tops) {
+    top.sum_K = 0;
+    top.from = null;
+  }
+}
+
+function compare(
+  level: Level,
+  model: StoreModel,
+  { in_control_d }: IndicatorsDefinition,
+  time_ms: number,
+): void {
+  const gas_K = level.gas_K / level.scans;
+  const rock = rockAt(model, level.beds as StandingBeds).temperature_K;
+  for (const top of level.tops) {
+    const now = {
+      read_K: top.sum_K / level.scans,
+      gas_K,
+      rock_K: rock[indexOf(model, top.tube, top.sensor)] as number,
+    };
+    if (!Number.isFinite(now.read_K)) continue;
+    const { from, followed } = top;
+    top.from ??= now;
+    if (from === null) continue;
+    const rocks = now.rock_K - from.rock_K;
+    const apart = gas_K - from.gas_K - rocks;
+    if (Math.abs(apart) < APART_K) continue;
+    top.from = now;
+    const value = (now.read_K - from.read_K - rocks) / apart;
+    const sigma = Math.hypot(CHANGE_K / apart, SHARE_SIGMA);
+    followed.decision = decisionAt(in_control_d, 6 * MEAN_S);
+    const tested = { value, sigma, healthy: COVERED, degraded: 1 };
+    stepSequential(followed.test, tested, followed.decision);
+    Object.assign(followed, { value, sigma, time_ms });
+  }
+}
+
+/** Place of a sensor among all of its store, by tube and sensor. */
+function indexOf(model: StoreModel, tube: number, sensor: number): number {
+  return model.channels.slice(0, tube).reduce((sum, row) => sum + row.length, 0) + sensor;
+}
+
+interface Found {
+  /** Deepest uncovered thermocouple and the next one below it [m]; null: none is uncovered. */
+  readonly least_m: number | null;
+  readonly most_m: number;
+  readonly ids: string[];
+  /** Topmost thermocouple of the store [m]. */
+  readonly top_m: number;
+  /** The test that is furthest on. */
+  readonly followed: Followed;
+}
+
+function found(level: Level, model: StoreModel, state: StoreState): Found {
+  let least: number | null = null;
+  let most = model.store.bed.length_m;
+  let topmost = model.store.bed.length_m;
+  const ids: string[] = [];
+  let followed = (level.tops[0] as Top).followed;
+  const further = (a: Followed, b: Followed) =>
+    Number(a.test.degraded) - Number(b.test.degraded) || a.test.up - b.test.up;
+  model.tubes.forEach(({ string }, k) => {
+    const places = fromTop(model, k);
+    let deepest = -1;
+    places.forEach(({ sensor, depth_m }, i) => {
+      topmost = Math.min(topmost, depth_m);
+      const top = level.tops.find((t) => t.tube === k && t.sensor === sensor);
+      const judged = state.sensors[k]?.[sensor]?.verdict === 'uncovered';
+      if (top !== undefined && further(top.followed, followed) > 0) followed = top.followed;
+      if (!judged && top?.followed.test.degraded !== true) return;
+      deepest = i;
+      ids.push(string.thermocouples[sensor]?.id ?? '');
+    });
+    if (deepest < 0) return;
+    const { depth_m } = places[deepest] as { depth_m: number };
+    if (least !== null && depth_m <= least) return;
+    least = depth_m;
+    most = places[deepest + 1]?.depth_m ?? model.store.bed.length_m;
+  });
+  return { least_m: least, most_m: most, ids, top_m: topmost, followed };
+}
+
+function view(
+  level: Level,
+  model: StoreModel,
+  state: StoreState,
+  gas: number,
+  rule: IndicatorRule,
+): IndicatorView {
+  const now = found(level, model, state);
+  const sunk = now.least_m;
+  let reason: IndicatorReason | null = null;
+  if (gas < 0 || now.top_m > DEEP_M) reason = 'not_instrumented';
+  const shown = shownAs({
+    kind: 'settling',
+    subject: model.store.id,
+    unit: 'm',
+    rule,
+    followed: now.followed,
+    healthy: 0,
+    healthy_from: 'law',
+    reason,
+    // Less than down to the topmost thermocouple is not seen.
+    limit: Math.max(rule.limit, now.top_m),
+    sentence: sentence(model.store.id, now, gas, rule),
+  });
+  const tested = now.followed.test.count > 0;
+  return {
+    ...shown,
+    state: sunk !== null ? 'degraded' : shown.state,
+    reason: sunk !== null ? null : shown.reason,
+    score: sunk !== null ? 1 : shown.score,
+    value: sunk ?? (tested ? 0 : null),
+    sigma:
+      sunk === null
+        ? tested
+          ? now.top_m / Math.sqrt(12)
+          : null
+        : (now.most_m - sunk) / Math.sqrt(12),
+  };
+}
+
+function sentence(store: string, now: Found, gas: number, rule: IndicatorRule): string {
+  const { least_m, most_m, ids, top_m, followed } = now;
+  if (least_m !== null)
+    return (
+      `Store ${store}: ${ids.join(', ')} hang${ids.length > 1 ? '' : 's'} in gas, no longer in rock: the bed has ` +
+      `sunk by ${least_m.toFixed(2)} to ${most_m.toFixed(2)} m there.`
+    );
+  const deep =
+    top_m > rule.limit
+      ? ` Its topmost thermocouple hangs ${top_m.toFixed(2)} m below the top of the bed: less is not seen.`
+      : '';
+  if (gas < 0)
+    return `Store ${store}: the gas above the bed is not measured, so a sunken bed shows late or not at all.`;
+  if (top_m > DEEP_M)
+    return `Store ${store}: no thermocouple is close to the top of the bed.${deep}`;
+  if (followed.test.count === 0)
+    return `Store ${store}: gas above the bed and rock have not moved apart by ${APART_K} K while standing, so where the topmost thermocouples hang is not known.${deep}`;
+  return `Store ${store}: its topmost thermocouples are in rock.${deep}`;
+}
