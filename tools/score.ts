@@ -28,7 +28,13 @@ import { QUICK, SCENARIOS } from './score/scenarios.js';
 import { FIXED_FROM, freshSeeds, seedsDone } from './score/seeds.js';
 import { tableText } from './score/table.js';
 import { truthIsKept } from './score/truthOf.js';
-import { PARTS, scoreWatch, WATCH_FROM, WATCH_SEEDS, type WatchScore } from './watch/runWatch.js';
+import {
+  ALL_PARTS,
+  scoreWatch,
+  WATCH_FROM,
+  WATCH_SEEDS,
+  type WatchScore,
+} from './watch/runWatch.js';
 
 helpIfAsked(import.meta.url);
 
@@ -109,7 +115,7 @@ async function watchScore(): Promise<WatchScore | null> {
   const watched = await scoreWatch({
     from: values.tuning ? 1 : WATCH_FROM,
     seeds: Math.min(WATCH_SEEDS, fixed.length),
-    parts: new Set(PARTS),
+    parts: ALL_PARTS,
     workers,
     truths: values['truths-only'],
     progress: (line) => console.error(`watch: ${line}`),

@@ -3,7 +3,7 @@
  * healthy lead (a day with part loads, a charge, 36 h of rest), one plant, machine, meter and set of
  * sensors per seed; and healthy days of cycling at changing power and weather.
  *
- *   npm run score:watch -- [--seeds 20] [--tuning] [--only branches,weeks] [--workers 2] [--strict]
+ *   npm run score:watch -- [--seeds 20] [--tuning] [--only strongest,weeks] [--workers 2] [--strict]
  *     [--truths-only]
  *   npx tsx tools/watchScore.ts --trace SEED BRANCH [--kinds heat_transfer,string_flow] [--every 1]
  *     [--before]
@@ -11,8 +11,8 @@
  * Seeds are from 30000 on, kept for judging and never looked at while building; --tuning takes 1, 2,
  * ... instead. Healthy weeks take plants of their own, 500 seeds on. Truths and results are kept in
  * .score/watch: a run that was stopped goes on where it was, and a run after a change of the
- * estimator needs no new truths. --only takes `branches` or `weeks`. --strict ends with code 1 where a
- * goal is missed.
+ * estimator needs no new truths. --only takes `weeks`, `branches`, `strongest` (grades, and no fault)
+ * or single branches. --strict ends with code 1 where a goal is missed.
  *
  * --trace runs one branch of one seed with the code as it is, and writes hour by hour (--every, in
  * hours) what has changed of each indicator (value, sigma, healthy, limit, score, state), and at once
@@ -24,7 +24,14 @@ import { parseArgs } from 'node:util';
 import { helpIfAsked } from './help.js';
 import { codeHash } from './score/codeHash.js';
 import { tableText } from './score/table.js';
-import { PARTS, type Part, scoreWatch, WATCH_FROM, WATCH_SEEDS } from './watch/runWatch.js';
+import {
+  ALL_PARTS,
+  PART_WORDS,
+  partsOf,
+  scoreWatch,
+  WATCH_FROM,
+  WATCH_SEEDS,
+} from './watch/runWatch.js';
 import { trace } from './watch/trace.js';
 import { branchOf } from './watch/watchJob.js';
 import { TRUTH_CODE } from './watch/watchTruth.js';
@@ -74,13 +81,15 @@ if (values.trace !== undefined) {
   process.exit(0);
 }
 
-const parts = (values.only ?? PARTS.join(',')).split(',');
-const unknown = parts.filter((part) => !(PARTS as readonly string[]).includes(part));
-if (unknown.length > 0) refuse(`--only must be of ${PARTS.join(', ')}; got ${unknown.join(', ')}`);
+const words = values.only?.split(',') ?? [];
+const unknown = words.filter((word) => !PART_WORDS.includes(word));
+if (unknown.length > 0) {
+  refuse(`--only must be of ${PART_WORDS.join(', ')}; got ${unknown.join(', ')}`);
+}
 const { text, blocks, failures } = await scoreWatch({
   from: values.tuning ? 1 : WATCH_FROM,
   seeds: above('seeds', values.seeds),
-  parts: new Set(parts as Part[]),
+  parts: words.length > 0 ? partsOf(words) : ALL_PARTS,
   workers: above('workers', values.workers),
   truths: values['truths-only'],
   progress: (line) => console.error(line),

@@ -127,6 +127,13 @@ export const BRANCHES: readonly Branch[] = [
   },
 ];
 
+/** Whether no stronger grade of the same fault follows. */
+export function strongest(branch: Branch): boolean {
+  const kind = (id: string) => id.replace(/-.*/, '');
+  const same = BRANCHES.filter((one) => kind(one.id) === kind(branch.id));
+  return same.at(-1) === branch;
+}
+
 /** The way on without a fault: what the faults are held against. */
 export const HEALTHY: Branch = {
   id: 'healthy',

@@ -1,7 +1,7 @@
 import { table } from '../../src/commands/table.js';
 import { type Figure, figure, median } from '../score/figure.js';
 import type { Block } from '../score/table.js';
-import { BRANCHES, type Branch } from './branches.js';
+import { BRANCHES, type Branch, strongest } from './branches.js';
 import type { HealthyJudged, Judged } from './judge.js';
 
 /** Goals: 18 of 20 of the strongest grade, no false degradation alert, an alarm a day at most. */
@@ -10,13 +10,6 @@ const ALARMS_PER_DAY = 1;
 const HEALTHY_DAYS = 300;
 /** With faults and with healthy weeks, of a whole run. */
 const PLANTS = 40;
-
-/** Whether no stronger grade of the same fault follows. */
-function strongest(branch: Branch): boolean {
-  const kind = (id: string) => id.replace(/-.*/, '');
-  const same = BRANCHES.filter((one) => kind(one.id) === kind(branch.id));
-  return same.at(-1) === branch;
-}
 
 const HEAD = [
   'fault',

@@ -5,7 +5,7 @@ import { codeHash } from '../score/codeHash.js';
 import { folder, keepFolders, root } from '../score/folder.js';
 import { runJobs } from '../score/pool.js';
 import type { Block } from '../score/table.js';
-import { BRANCHES, HEALTHY } from './branches.js';
+import { BRANCHES, HEALTHY, strongest } from './branches.js';
 import { type HealthyJudged, type Judged, judge, judgeHealthy } from './judge.js';
 import { falseAlerts, faultTable, watchBlocks } from './report.js';
 import {
@@ -24,14 +24,30 @@ export const WATCH_FROM = 30_000;
 /** Plants with faults, and as many with healthy weeks, of a whole run. */
 export const WATCH_SEEDS = 20;
 
-/** What of the watch is scored. */
-export const PARTS = ['branches', 'weeks'] as const;
-export type Part = (typeof PARTS)[number];
+/** What of the watch is scored: branches by their ids, and healthy weeks. */
+export interface WatchParts {
+  readonly ids: readonly string[];
+  readonly weeks: boolean;
+}
+
+const EVERY = [...BRANCHES, HEALTHY].map(({ id }) => id);
+export const ALL_PARTS: WatchParts = { ids: EVERY, weeks: true };
+/** Words that stand for parts. */
+export const PART_WORDS: readonly string[] = ['branches', 'strongest', 'weeks', ...EVERY];
+
+/** Parts by their words. */
+export function partsOf(words: readonly string[]): WatchParts {
+  const top = BRANCHES.filter(strongest).map(({ id }) => id);
+  const named = words.flatMap((word) =>
+    word === 'branches' ? EVERY : word === 'strongest' ? [...top, HEALTHY.id] : [word],
+  );
+  return { ids: EVERY.filter((id) => named.includes(id)), weeks: words.includes('weeks') };
+}
 
 export interface WatchOptions {
   readonly from: number;
   readonly seeds: number;
-  readonly parts: ReadonlySet<Part>;
+  readonly parts: WatchParts;
   readonly workers: number;
   /** Only truths are made. */
   readonly truths: boolean;
@@ -61,11 +77,12 @@ export async function scoreWatch(options: WatchOptions): Promise<WatchScore> {
   keepFolders('watch', [`truth-${hashes.truth}`, `results-${hashes.result}`], 8);
   const seeds = Array.from({ length: options.seeds }, (_, i) => options.from + i);
   // Seed by seed, so that a run that is stopped has both of some seeds.
-  const jobs = seeds.flatMap((seed) =>
-    PARTS.filter((part) => options.parts.has(part)).map((kind): WatchJob => {
-      return { kind, seed: kind === 'weeks' ? seed + WEEKS_SEED : seed, truths: options.truths };
-    }),
-  );
+  const { ids, weeks } = options.parts;
+  const { truths } = options;
+  const jobs = seeds.flatMap((seed): WatchJob[] => [
+    ...(ids.length > 0 ? [{ kind: 'branches', seed, ids, truths } as const] : []),
+    ...(weeks ? [{ kind: 'weeks', seed: seed + WEEKS_SEED, ids: [], truths } as const] : []),
+  ]);
   const missing = jobs.filter((job) => options.truths || !isDone(job, hashes));
   const cost = { truth_s: 0, truth_d: 0, run_s: 0, run_d: 0 };
   const started = performance.now();
@@ -88,7 +105,7 @@ export async function scoreWatch(options: WatchOptions): Promise<WatchScore> {
     },
     file,
   );
-  const judged = judgedFaults(seeds, hashes);
+  const judged = judgedFaults(ids, seeds, hashes);
   const healthy = judgedHealthy(jobs, hashes);
   const blocks = watchBlocks(judged, healthy);
   const lines = [costLine(cost)];
@@ -109,9 +126,13 @@ function costLine({ truth_s, truth_d, run_s, run_d }: WatchCost): string {
   return `anew: ${truth}, ${run_d.toFixed(0)} of the estimator${each(run_s, run_d)}`;
 }
 
-function judgedFaults(seeds: readonly number[], { result }: WatchHashes): Map<string, Judged[]> {
+function judgedFaults(
+  ids: readonly string[],
+  seeds: readonly number[],
+  { result }: WatchHashes,
+): Map<string, Judged[]> {
   const judged = new Map<string, Judged[]>();
-  for (const branch of BRANCHES) {
+  for (const branch of BRANCHES.filter(({ id }) => ids.includes(id))) {
     const own = seeds.flatMap((seed) => {
       const run = watchResult(seed, branch.id, result);
       return run === null ? [] : [judge(branch, seed, run)];

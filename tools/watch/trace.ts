@@ -34,7 +34,7 @@ export function trace(options: TraceOptions, truthHash: string): void {
     watchRecording(unit, startUnit(unit), stretch(seed, 'weeks', hashes), looker(options, true));
     return;
   }
-  makeBranches(seed, truthHash, id);
+  makeBranches(seed, truthHash, [id]);
   const branch = branchOf(id);
   const unit = watchedUnit(branch?.unit ?? 'demo');
   const state = startUnit(unit);

@@ -12,6 +12,8 @@ import { watchedUnit } from './watchUnit.js';
 export interface WatchJob {
   readonly kind: 'branches' | 'weeks';
   readonly seed: number;
+  /** Branches wanted, by their ids; none of weeks. */
+  readonly ids: readonly string[];
   /** Only the truths. */
   readonly truths: boolean;
 }
@@ -45,21 +47,17 @@ function keepResult(seed: number, name: string, hash: string, run: WatchRun): vo
   renameSync(`${file}.part`, file);
 }
 
-/** Results that a job leaves, in the order in which they are made. */
-export const namesOf = (job: Pick<WatchJob, 'kind'>): string[] =>
-  job.kind === 'weeks'
-    ? ['weeks']
-    : ['lead', 'lead-top', 'way', ...[...BRANCHES, HEALTHY].map((b) => b.id)];
-
-export const isDone = (job: WatchJob, { result }: WatchHashes): boolean =>
-  namesOf(job).every((name) => existsSync(fileOf(job.seed, name, result)));
+export const isDone = ({ kind, seed, ids }: WatchJob, { result }: WatchHashes): boolean =>
+  (kind === 'weeks' ? ['weeks'] : ids).every((name) => existsSync(fileOf(seed, name, result)));
 
 /** Runs a job; what has been kept of it is not run again, but for the way to an onset. */
 export function runWatchJob(job: WatchJob, hashes: WatchHashes): WatchCost {
   prepareTruths(hashes.truth);
   const before = process.cpuUsage();
   const truth_d =
-    job.kind === 'weeks' ? makeWeeks(job.seed, hashes.truth) : makeBranches(job.seed, hashes.truth);
+    job.kind === 'weeks'
+      ? makeWeeks(job.seed, hashes.truth)
+      : makeBranches(job.seed, hashes.truth, job.ids);
   const { user, system } = process.cpuUsage(before);
   const truth_s = (user + system) / 1e6;
   const cost = { truth_s, truth_d, run_s: 0, run_d: 0 };
@@ -75,26 +73,27 @@ export function runWatchJob(job: WatchJob, hashes: WatchHashes): WatchCost {
     keepResult(job.seed, 'weeks', hashes.result, run);
     return cost;
   }
-  for (const kind of ['demo', 'top'] as const) runUnit(kind, job.seed, hashes, add);
+  for (const kind of ['demo', 'top'] as const) runUnit(kind, job, hashes, add);
   return cost;
 }
 
 /** Lead and way once, with the faults that set in at the end of each on copies of the state. */
 function runUnit(
   kind: UnitKind,
-  seed: number,
+  { seed, ids }: WatchJob,
   hashes: WatchHashes,
   add: (run: WatchRun) => void,
 ): void {
+  const missing = [...BRANCHES, HEALTHY].filter(
+    ({ id, unit }) =>
+      unit === kind && ids.includes(id) && watchResult(seed, id, hashes.result) === null,
+  );
+  if (missing.length === 0) return;
   const unit = watchedUnit(kind);
   const state = startUnit(unit);
-  const missing = [...BRANCHES, HEALTHY].filter(
-    (one) => one.unit === kind && watchResult(seed, one.id, hashes.result) === null,
-  );
   const suffix = kind === 'demo' ? '' : `-${kind}`;
   for (const onset of ['lead', 'way'] as const) {
-    // With the thermocouples near the top nothing sets in later.
-    if (kind === 'top' && onset === 'way') return;
+    if (onset === 'way' && missing.every((one) => one.onset === 'lead')) return;
     const lead = watchRecording(unit, state, stretch(seed, onset, hashes));
     add(lead);
     keepResult(seed, `${onset}${suffix}`, hashes.result, lead);

@@ -80,11 +80,11 @@ export const keptStretch = (seed: number, stretch: Stretch, hash: string): Recor
  * Makes what is missing of a seed's lead, way and branches, each on a copy of the plant at its onset.
  *
  * @param hash of TRUTH_CODE, see codeHash
- * @param only this branch, or lead, and what comes before it
+ * @param ids of the branches that are wanted; the lead comes in any case
  * @returns simulated days made now
  */
-export function makeBranches(seed: number, hash: string, only?: string): number {
-  const wanted = [...BRANCHES, HEALTHY].filter(({ id }) => only === undefined || id === only);
+export function makeBranches(seed: number, hash: string, ids: readonly string[]): number {
+  const wanted = [...BRANCHES, HEALTHY].filter(({ id }) => ids.includes(id));
   const missing = wanted.filter(({ id }) => !isKept(seed, id, hash));
   const last = wanted.some(({ onset }) => onset === 'way') ? 'way' : 'lead';
   const onsets = ONSETS.slice(0, ONSETS.indexOf(last) + 1);
