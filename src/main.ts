@@ -1,4 +1,5 @@
 import { Command, CommanderError } from 'commander';
+import { register as registerAlarms } from './commands/alarms.js';
 import { register as registerBalance } from './commands/balance.js';
 import { register as registerCapability } from './commands/capability.js';
 import { register as registerCheck } from './commands/check.js';
@@ -9,6 +10,7 @@ import { closingHelp } from './commands/help.js';
 import { register as registerHours } from './commands/hours.js';
 import { register as registerOffers } from './commands/offers.js';
 import { register as registerReplay } from './commands/replay.js';
+import { register as registerReport } from './commands/report.js';
 import { packageVersion, register as registerRun } from './commands/run.js';
 import { register as registerSchedule } from './commands/schedule.js';
 import { register as registerSensors } from './commands/sensors.js';
@@ -27,6 +29,8 @@ const COMMANDS = [
   registerCapability,
   registerBalance,
   registerCycles,
+  registerReport,
+  registerAlarms,
   registerTune,
   registerSensors,
   registerCheck,

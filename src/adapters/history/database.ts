@@ -53,6 +53,32 @@ export function openDatabase(file: string, durability: Durability, steps: Migrat
   }
 }
 
+/**
+ * Opens a database file to read alone, beside a daemon that may be writing to it.
+ * @throws RockhourError STORE_FAILED where there is none, it cannot be read, or is of another version
+ */
+export function openToRead(file: string, steps: Migrations): Database {
+  let database: Database | null = null;
+  try {
+    database = new SQLite(file, { readonly: true, fileMustExist: true, timeout: 2000 });
+    const version = Number(database.pragma('user_version', { simple: true }));
+    if (version === steps.length) return database;
+    throw new RockhourError(
+      'STORE_FAILED',
+      `reading ${file}: it has schema ${version}, this rockhour reads ${steps.length}`,
+      {
+        advice:
+          version < steps.length
+            ? 'Start this version of the daemon once: it brings the file up to date.'
+            : 'Use the newer version that wrote it.',
+      },
+    );
+  } catch (thrown) {
+    database?.close();
+    throw storeFailure(`reading ${file}`, thrown);
+  }
+}
+
 function migrate(database: Database, file: string, steps: Migrations): void {
   const version = Number(database.pragma('user_version', { simple: true }));
   if (version > steps.length) {

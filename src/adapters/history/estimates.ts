@@ -67,6 +67,31 @@ export class Estimates {
     return this.newest<Estimate>('estimates', unit)?.content ?? null;
   }
 
+  /** The newest of a span of time; null where it has none. */
+  newestUntil(unit: string, from_ms: number, to_ms: number): Estimate | null {
+    const json = this.database
+      .prepare(
+        'SELECT json FROM estimates WHERE unit = ? AND time BETWEEN ? AND ? ORDER BY time DESC LIMIT 1',
+      )
+      .pluck()
+      .get(unit, from_ms, to_ms) as string | undefined;
+    return json === undefined ? null : (JSON.parse(json) as Estimate);
+  }
+
+  /** The profile that was kept nearest to a time, at most `within_ms` from it. */
+  profileNear(unit: string, time_ms: number, within_ms: number): ProfileView | null {
+    const json = this.database
+      .prepare(
+        `SELECT json FROM profiles WHERE unit = @unit AND time BETWEEN @from AND @to
+         ORDER BY abs(time - @time_ms) LIMIT 1`,
+      )
+      .pluck()
+      .get({ unit, time_ms, from: time_ms - within_ms, to: time_ms + within_ms }) as
+      | string
+      | undefined;
+    return json === undefined ? null : (JSON.parse(json) as ProfileView);
+  }
+
   latestProfile(unit: string): ProfileView | null {
     return this.newest<ProfileView>('profiles', unit)?.content ?? null;
   }

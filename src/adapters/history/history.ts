@@ -2,7 +2,7 @@ import type { StoreConfig } from '../../config/site.js';
 import { type AlarmRules, Alarms } from './alarms.js';
 import { Checkpoints } from './checkpoints.js';
 import { Cycles } from './cycles.js';
-import { type Database, openDatabase, storeFailure } from './database.js';
+import { type Database, openDatabase, openToRead, storeFailure } from './database.js';
 import { Estimates } from './estimates.js';
 import { EventQueue } from './eventQueue.js';
 import { Events } from './events.js';
@@ -41,7 +41,15 @@ export class History {
   /** @throws RockhourError STORE_FAILED */
   start(): void {
     if (this.opened) return;
-    const database = openDatabase(this.file, 'normal', HISTORY_SCHEMA);
+    this.open(openDatabase(this.file, 'normal', HISTORY_SCHEMA));
+  }
+
+  /** For reports: reads alone, beside a daemon. @throws RockhourError STORE_FAILED */
+  startToRead(): void {
+    if (!this.opened) this.open(openToRead(this.file, HISTORY_SCHEMA));
+  }
+
+  private open(database: Database): void {
     const sequence = new Sequence(database);
     const alarms = new Alarms(database, this.rules);
     this.opened = {

@@ -1,0 +1,123 @@
+import { writeFileSync } from 'node:fs';
+import { join } from 'node:path';
+import type { Command } from 'commander';
+import { History } from '../adapters/history/history.js';
+import { gatherReport } from '../adapters/history/reportReader.js';
+import { reportHtml } from '../adapters/report/html.js';
+import { reportCsv } from '../adapters/report/reportCsv.js';
+import { loadSite } from '../config/load.js';
+import { findingsOf } from '../core/report/findings.js';
+import type { ReportData } from '../core/report/reportData.js';
+import { fileReasonOf, RockhourError } from '../errors.js';
+import { packageVersion } from './run.js';
+import { chooseUnit } from './site.js';
+import { parsePoint_ms } from './values.js';
+
+interface ReportOptions {
+  readonly config: string;
+  readonly from: string;
+  readonly to?: string;
+  readonly unit?: string;
+  readonly at?: string;
+  readonly format?: string;
+  readonly out?: string;
+}
+
+const FORMATS = ['html', 'json', 'csv'] as const;
+type Format = (typeof FORMATS)[number];
+
+function report(options: ReportOptions): void {
+  const format = formatOf(options);
+  const from_ms = parsePoint_ms('--from', options.from);
+  const to_ms = options.to === undefined ? Date.now() : parsePoint_ms('--to', options.to);
+  if (!(to_ms > from_ms))
+    throw new RockhourError(
+      'USAGE',
+      `--to ${options.to ?? 'now'} is not after --from ${options.from}`,
+    );
+  const profiles_at_ms = (options.at?.split(',') ?? []).map((text) => parsePoint_ms('--at', text));
+  const site = loadSite(options.config);
+  const unit = chooseUnit(site, options.unit);
+  const history = new History(join(site.store.folder, 'history.sqlite'), site.store);
+  history.startToRead();
+  try {
+    const data = gatherReport(history, unit, {
+      ...{
+        site: site.name,
+        version: packageVersion(),
+        from_ms,
+        to_ms,
+        made_ms: Date.now(),
+        profiles_at_ms,
+      },
+    });
+    if (data.readings.scans === 0)
+      throw new RockhourError(
+        'USAGE',
+        `unit ${unit.id} has no estimates from ${data.from} to ${data.to} in ${site.store.folder}`,
+      );
+    give(rendered(data, format), options.out);
+    if (options.out !== undefined) tell(data, options.out);
+  } finally {
+    history.stop();
+  }
+}
+
+function formatOf({ format, out }: ReportOptions): Format {
+  const ending = FORMATS.find((one) => out?.toLowerCase().endsWith(`.${one}`));
+  const chosen = format ?? ending ?? 'html';
+  if (FORMATS.includes(chosen as Format)) return chosen as Format;
+  throw new RockhourError(
+    'USAGE',
+    `--format is ${JSON.stringify(format)}; expected ${FORMATS.join(', ')}`,
+  );
+}
+
+function rendered(data: ReportData, format: Format): string {
+  if (format === 'csv') return reportCsv(data);
+  if (format === 'json') return `${JSON.stringify({ findings: findingsOf(data), ...data })}\n`;
+  return reportHtml(data);
+}
+
+function give(text: string, out: string | undefined): void {
+  if (out === undefined) {
+    process.stdout.write(text);
+    return;
+  }
+  try {
+    writeFileSync(out, text);
+  } catch (thrown) {
+    throw new RockhourError('OUTPUT_UNWRITABLE', `writing ${out}: ${fileReasonOf(thrown)}`, {
+      cause: thrown,
+    });
+  }
+}
+
+/** The findings in a line each, so that a person knows whether to open the file. */
+function tell(data: ReportData, out: string): void {
+  const lines = findingsOf(data).map(
+    ({ level, subject, title }) => `  ${level}: ${subject}: ${title}`,
+  );
+  process.stderr.write(`${out}: ${data.cycles.length} runs from ${data.from} to ${data.to}\n`);
+  process.stderr.write(`${lines.join('\n')}\n`);
+}
+
+export function register(program: Command): void {
+  program
+    .command('report')
+    .description('what happened to the beds in a span of time, for maintenance: findings first')
+    .requiredOption(
+      '--config <file>',
+      'configuration of the site (YAML), whose local store is read',
+    )
+    .requiredOption('--from <time>', 'beginning, ISO 8601 with offset or seconds since 1970')
+    .option('--to <time>', 'end; now unless told')
+    .option('--unit <id>', 'unit asked for; needed where there are several')
+    .option(
+      '--at <times>',
+      'times whose profiles are drawn, with commas; the last runs unless told',
+    )
+    .option('--format <format>', 'html, json or csv; by the ending of --out, else html')
+    .option('--out <file>', 'file to write; standard output unless told')
+    .action(report);
+}
