@@ -9,6 +9,7 @@ import type {
   IndicatorView,
 } from '../indicator.js';
 import { decisionAt, stepSequential } from '../sequential.js';
+import { type Entry, followEntry, startEntry, UNCOVERED } from './settlingEntry.js';
 import { type Followed, shownAs, startFollowed } from './shown.js';
 import { copyBeds, rockAt, type StandingBeds, standOn } from './standingModel.js';
 
@@ -46,6 +47,7 @@ interface Level {
   gas_K: number;
   beds: StandingBeds | null;
   readonly tops: Top[];
+  readonly entry: Entry;
 }
 
 export interface SettlingState {
@@ -60,6 +62,7 @@ export interface SettlingState {
  *   s = (reading's change - rock's change) / (gas's change - rock's change)
  *
  * is one value of each topmost thermocouple's test: about 0 in rock, 1 in gas. Constant offsets cancel.
+ * How quickly they follow gas that begins to enter there is another one (see followEntry).
  * Thermocouples that the judgement calls `uncovered` count as well.
  */
 export const SETTLING: Indicator<SettlingState> = {
@@ -108,10 +111,10 @@ function startLevel(model: StoreModel): Level {
         }),
       ),
   );
-  return { ...noRest(), tops };
+  return { ...noRest(), tops, entry: startEntry(tops) };
 }
 
-const noRest = (): Omit<Level, 'tops'> => ({
+const noRest = (): Omit<Level, 'tops' | 'entry'> => ({
   stood_s: 0,
   mean_s: 0,
   scans: 0,
@@ -125,12 +128,14 @@ function follow(
   s: number,
   gas: number,
   watching: IndicatorsDefinition,
-  { state, taken, dt_s, time_ms }: IndicatorInput,
+  input: IndicatorInput,
 ): void {
+  const { state, taken, dt_s, time_ms } = input;
   const { conditions, scan } = taken;
   const store = state.stores[s] as StoreState;
   const stands = conditions.mode === 'stand' && conditions.flow_kg_s === 0 && conditions.flowKnown;
   const read = scan.values[gas] as number;
+  if (store.started && dt_s <= MEAN_S) enter(level, model, store, read, watching, input);
   if (!stands || !store.started || dt_s > MEAN_S) {
     if (level.stood_s > 0) restart(level);
     return;
@@ -152,6 +157,37 @@ function follow(
   level.scans = 0;
   level.gas_K = 0;
   for (const top of level.tops) top.sum_K = 0;
+}
+
+/** Gas that begins to enter at the top. */
+function enter(
+  level: Level,
+  model: StoreModel,
+  store: StoreState,
+  gas_K: number,
+  { in_control_d }: IndicatorsDefinition,
+  { taken, dt_s, time_ms }: IndicatorInput,
+): void {
+  const { conditions, scan } = taken;
+  const atTop = conditions.flow_kg_s > 0 === (model.store.charge_inlet_at === 'top');
+  const leaps = followEntry(level.entry, model, store, level.tops, {
+    gas_K,
+    read_K: level.tops.map(
+      ({ tube, sensor }) => scan.values[model.channels[tube]?.[sensor] as number] as number,
+    ),
+    massFlux_kg_m2s: atTop ? conditions.flow_kg_s / model.store.bed.area_m2 : 0,
+    ambient_K: conditions.ambient_K,
+    dt_s,
+  });
+  leaps.forEach((leap, i) => {
+    if (leap === null) return;
+    const { followed } = level.tops[i] as Top;
+    const { value, sigma, covered } = leap;
+    followed.decision = decisionAt(in_control_d, 6 * MEAN_S);
+    const tested = { value, sigma, healthy: covered, degraded: UNCOVERED };
+    stepSequential(followed.test, tested, followed.decision);
+    Object.assign(followed, { value, sigma, time_ms });
+  });
 }
 
 function restart(level: Level): void {
