@@ -1,0 +1,245 @@
+import type { Mode } from '../../definitions.js';
+import { meanTemperatures } from '../../track/storeEstimate.js';
+import type { StoreState } from '../../track/storeTracker.js';
+import type { UnitModel } from '../../unitModel.js';
+import { type BaselineState, baseline, learnBaseline, startBaseline } from '../baseline.js';
+import type {
+  Indicator,
+  IndicatorInput,
+  IndicatorRule,
+  IndicatorsDefinition,
+} from '../indicator.js';
+import { decisionAt, stepSequential } from '../sequential.js';
+import { channelOf } from './pressureDrop.js';
+import { type Followed, shownAs, startFollowed, withSigma } from './shown.js';
+
+/** An hour in one mode makes one value, after the pressures have settled [s]. */
+const HOUR_S = 3600;
+const SETTLE_S = 900;
+/**
+ * One sigma of an hour's mean in ln: a pressure transmitter's drift and what ambient does to the pipes;
+ * the scatter that the plant itself shows is taken where it is more.
+ */
+const VALUE_SIGMA = 0.003;
+const RULE = { floor: 0.002, enough: 0.003, least: 3 };
+/** ln of the pressures of a sound plant against those configured, as long as nothing is learned. */
+const PRIOR_SIGMA = 0.05;
+
+const MODES = ['charge', 'stand', 'discharge'] as const;
+/** `held`: pressures are kept, gas goes to and from a buffer. `closed`: the loop keeps its gas. */
+const LAWS = ['held', 'closed'] as const;
+type Law = (typeof LAWS)[number];
+
+/** Healthy value of one law in one mode, and the scatter about it. */
+interface Learned {
+  readonly healthy: BaselineState;
+  /** Sums of values less the first, and of their squares. */
+  first: number;
+  sum: number;
+  squares: number;
+}
+
+export interface GasInventoryState {
+  mode: Mode | null;
+  mode_s: number;
+  hour_s: number;
+  scans: number;
+  /** Sum of the mean ln pressure [-]. */
+  sum: number;
+  readonly laws: Record<Law, Record<Mode, Learned>>;
+  readonly followed: Followed;
+}
+
+/**
+ * Share of the gas that is lost, by the pressures of the stores against their healthy values in the
+ * same mode. Two laws are learned side by side: that pressures are held (a buffer takes what the beds
+ * displace; then the pressures themselves stay), and that the loop is closed (then sum p V/T stays,
+ * with the mean temperatures of the gas in the beds). The one that has scattered less decides.
+ */
+export const GAS_INVENTORY: Indicator<GasInventoryState> = {
+  kind: 'gas_inventory',
+  start: () => ({
+    mode: null,
+    mode_s: 0,
+    hour_s: 0,
+    scans: 0,
+    sum: 0,
+    laws: { held: byMode(), closed: byMode() },
+    followed: startFollowed(),
+  }),
+  step(state, rule, watching, input) {
+    const channels = pressures(input.model);
+    if (channels.length > 0) follow(state, channels, rule, watching, input);
+    const { unit } = input.model;
+    const law = lawOf(state);
+    const learned = MODES.some((mode) => state.laws[law][mode].healthy.kept);
+    const blind = channels.length === 0;
+    return [
+      shownAs({
+        kind: 'gas_inventory',
+        subject: unit.id,
+        unit: '-',
+        rule,
+        followed: state.followed,
+        healthy: blind ? null : 0,
+        healthy_from: learned ? 'learned' : 'configured',
+        reason: blind
+          ? 'not_instrumented'
+          : state.followed.test.count > 0 && !learned
+            ? 'learning'
+            : null,
+        sentence: sentence(unit.id, state.followed, law, channels.length, rule),
+      }),
+    ];
+  },
+};
+
+const byMode = (): Record<Mode, Learned> => ({
+  charge: startLearned(),
+  stand: startLearned(),
+  discharge: startLearned(),
+});
+
+function startLearned(): Learned {
+  return { healthy: startBaseline(), first: 0, sum: 0, squares: 0 };
+}
+
+interface Pressure {
+  readonly channel: number;
+  readonly store: number;
+}
+
+function pressures(model: UnitModel): Pressure[] {
+  return model.stores.flatMap(({ store }, s) => {
+    const channel = channelOf(model, 'pressure', store.id);
+    return channel < 0 ? [] : [{ channel, store: s }];
+  });
+}
+
+function follow(
+  state: GasInventoryState,
+  channels: readonly Pressure[],
+  rule: IndicatorRule,
+  watching: IndicatorsDefinition,
+  input: IndicatorInput,
+): void {
+  const { taken, dt_s, model } = input;
+  const { mode } = taken.conditions;
+  if (mode !== state.mode) {
+    Object.assign(state, { mode, mode_s: 0, hour_s: 0, scans: 0, sum: 0 });
+  }
+  state.mode_s += dt_s;
+  if (state.mode_s < SETTLE_S) return;
+  state.hour_s += dt_s;
+  // Relative to what is configured, so that both levels count alike.
+  const ln = channels.map(({ channel, store }) => {
+    const read = taken.scan.values[channel] as number;
+    const { pressure_Pa } = (model.stores[store] as UnitModel['stores'][number]).store.bed;
+    return read > 0 ? Math.log(read / pressure_Pa) : Number.NaN;
+  });
+  const mean = ln.reduce((sum, one) => sum + one, 0) / ln.length;
+  if (Number.isFinite(mean)) {
+    state.scans++;
+    state.sum += mean;
+  }
+  if (state.hour_s < HOUR_S) return;
+  if (state.scans > 0) take(state, state.sum / state.scans, channels, rule, watching, input);
+  state.hour_s = 0;
+  state.scans = 0;
+  state.sum = 0;
+}
+
+/** ln of sum V/T of the beds' gas at the configured pressures. */
+function lnContents({ model, state }: IndicatorInput, channels: readonly Pressure[]): number {
+  let sum = 0;
+  for (const { store } of channels) {
+    const one = model.stores[store] as UnitModel['stores'][number];
+    const { area_m2, length_m, void_fraction, pressure_Pa } = one.store.bed;
+    const profile = meanTemperatures(one, state.stores[store] as StoreState);
+    const perKelvin = profile.reduce((total, t) => total + 1 / t, 0) / profile.length;
+    sum += area_m2 * length_m * void_fraction * pressure_Pa * perKelvin;
+  }
+  return Math.log(sum);
+}
+
+/** The law with the less scatter about its own means; `held` until three values of a mode are known. */
+function lawOf({ laws }: GasInventoryState): Law {
+  const scatter = (law: Law): number => {
+    let sum = 0;
+    for (const mode of MODES) {
+      const { healthy, sum: s, squares } = laws[law][mode];
+      if (healthy.count >= 3) sum += squares - (s * s) / healthy.count;
+    }
+    return sum;
+  };
+  return scatter('closed') < scatter('held') ? 'closed' : 'held';
+}
+
+function take(
+  state: GasInventoryState,
+  lnPressure: number,
+  channels: readonly Pressure[],
+  rule: IndicatorRule,
+  { in_control_d, baseline_from_ms }: IndicatorsDefinition,
+  input: IndicatorInput,
+): void {
+  const mode = state.mode as Mode;
+  const values = { held: lnPressure, closed: lnPressure + lnContents(input, channels) };
+  const law = lawOf(state);
+  const { healthy, sum, squares } = state.laws[law][mode];
+  const learned = healthy.count >= 2 ? baseline(healthy, RULE) : null;
+  const { followed } = state;
+  followed.decision = decisionAt(in_control_d, HOUR_S);
+  // Without anything learned only the configured pressures are there to hold against.
+  const known = learned ?? { value: 0, sigma: PRIOR_SIGMA };
+  const value = (learned === null ? lnPressure : values[law]) - known.value;
+  const own =
+    learned === null
+      ? 0
+      : Math.sqrt(Math.max(0, squares - (sum * sum) / healthy.count) / healthy.count);
+  const sigma = Math.max(VALUE_SIGMA, own);
+  const lost = 1 - Math.exp(value);
+  const safe = 2 * known.sigma;
+  const tested = { value: lost, sigma, healthy: safe, degraded: safe + rule.limit };
+  stepSequential(followed.test, tested, followed.decision);
+  Object.assign(followed, {
+    value: lost,
+    sigma: Math.hypot(sigma, known.sigma),
+    time_ms: input.time_ms,
+  });
+  if (followed.test.degraded || followed.test.up > 0.25 * followed.decision) return;
+  for (const one of LAWS) {
+    const into = state.laws[one][mode];
+    if (into.healthy.kept) continue;
+    if (into.healthy.begun_ms !== baseline_from_ms) Object.assign(into, startLearned());
+    const before = into.healthy.count;
+    const v = { value: values[one], sigma: VALUE_SIGMA };
+    learnBaseline(into.healthy, v, input.time_ms, baseline_from_ms, RULE);
+    if (into.healthy.count === before) continue;
+    if (before === 0) into.first = values[one];
+    const d = values[one] - into.first;
+    into.sum += d;
+    into.squares += d * d;
+  }
+}
+
+function sentence(
+  unit: string,
+  { value, sigma, test }: Followed,
+  law: Law,
+  channels: number,
+  rule: IndicatorRule,
+): string {
+  if (channels === 0)
+    return `Unit ${unit}: no pressure is measured, so lost gas does not show here.`;
+  const rests =
+    law === 'held'
+      ? 'It rests on pressures that the plant keeps: as long as a buffer makes up for it, gas is lost unseen.'
+      : 'It rests on pressures and the mean temperatures of the gas in the beds, as in a closed loop.';
+  if (value === null || sigma === null)
+    return `Unit ${unit}: pressures are followed hour by hour. ${rests}`;
+  const figure = `${withSigma(100 * value, 100 * sigma, 1)} % (limit ${(100 * rule.limit).toFixed(0)} %)`;
+  return test.degraded
+    ? `Unit ${unit}: by its pressures it has lost ${figure} of its gas. ${rests}`
+    : `Unit ${unit}: gas lost by its pressures ${figure}. ${rests}`;
+}

@@ -1,0 +1,138 @@
+import type { Mode } from '../../definitions.js';
+import { type BaselineState, baseline, learnBaseline, startBaseline } from '../baseline.js';
+import type { Indicator, IndicatorReason } from '../indicator.js';
+import { decisionAt, stepSequential } from '../sequential.js';
+import { type Followed, shownAs, startFollowed, withSigma } from './shown.js';
+
+/** A run shorter than this ends no phase of a cycle [s]. */
+const LEAST_RUN_S = 1800;
+/**
+ * One sigma of how far the stores of a sound plant differ from their usual difference at the end of a
+ * run, of the charge: powers, ambient and the coolers' heat differ from cycle to cycle.
+ */
+const VALUE_SIGMA = 0.02;
+const RULE = { floor: 0.015, enough: 0.02, least: 2 };
+/** Stores that are charged together may stand apart by this as long as nothing usual is known [-]. */
+const PRIOR_SIGMA = 0.1;
+/** Values come at the ends of runs, some three hours apart [s]. */
+const SPACING_S = 3 * 3600;
+
+export interface StoreMismatchState {
+  mode: Mode;
+  ran_s: number;
+  /** Newest charge of the first hot and the cold store, and sigma of their difference. */
+  difference: number;
+  sigma: number;
+  /** Which of them holds more, as a sign. */
+  readonly healthy: Record<'charge' | 'discharge', BaselineState>;
+  readonly hot: Followed;
+  readonly cold: Followed;
+}
+
+/**
+ * What one store holds that the other cannot match, of the rated energy: the difference of their states
+ * of charge at the end of a run against the usual one at the end of such runs, times the hours of a
+ * full unit over the rated ones. It is lost to dispatch until trimmed.
+ */
+export const STORE_MISMATCH: Indicator<StoreMismatchState> = {
+  kind: 'store_mismatch',
+  start: () => ({
+    mode: 'stand',
+    ran_s: 0,
+    difference: Number.NaN,
+    sigma: Number.NaN,
+    healthy: { charge: startBaseline(), discharge: startBaseline() },
+    hot: startFollowed(),
+    cold: startFollowed(),
+  }),
+  step(state, rule, watching, { model, taken, time_ms, dt_s }) {
+    const { unit } = model;
+    const hot = model.stores.findIndex(({ store }) => store.kind === 'hot');
+    const cold = model.stores.findIndex(({ store }) => store.kind === 'cold');
+    const alone = hot < 0 || cold < 0;
+    const scale = model.fullHours / unit.rated_hours;
+    const { mode } = taken.conditions;
+    if (mode !== state.mode) {
+      if (state.mode !== 'stand' && state.ran_s >= LEAST_RUN_S && Number.isFinite(state.sigma))
+        take(state, state.mode, scale);
+      state.mode = mode;
+      state.ran_s = 0;
+    }
+    state.ran_s += dt_s;
+    if (!alone) {
+      const [a, b] = [taken.stores[hot]?.energy, taken.stores[cold]?.energy];
+      state.difference = (a?.soc ?? Number.NaN) - (b?.soc ?? Number.NaN);
+      state.sigma = Math.hypot(a?.soc_sigma ?? Number.NaN, b?.soc_sigma ?? Number.NaN);
+    }
+    const followed = worse(state);
+    const kept = state.healthy.charge.kept || state.healthy.discharge.kept;
+    let reason: IndicatorReason | null = null;
+    if (alone) reason = 'not_instrumented';
+    else if (followed.test.count > 0 && !kept) reason = 'learning';
+    return [
+      shownAs({
+        kind: 'store_mismatch',
+        subject: unit.id,
+        unit: '-',
+        rule,
+        followed,
+        healthy: alone ? null : 0,
+        healthy_from: kept ? 'learned' : 'configured',
+        reason,
+        sentence: sentence(unit.id, followed, followed === state.hot, alone, rule.limit),
+      }),
+    ];
+
+    function take(now: StoreMismatchState, run: 'charge' | 'discharge', factor: number): void {
+      const learned = baseline(now.healthy[run], RULE);
+      const known = learned ?? { value: 0, sigma: PRIOR_SIGMA };
+      const value = factor * (now.difference - known.value);
+      const sigma = factor * Math.hypot(now.sigma, VALUE_SIGMA);
+      const healthy = factor * 2 * known.sigma;
+      for (const [one, sign] of [
+        [now.hot, 1],
+        [now.cold, -1],
+      ] as const) {
+        one.decision = decisionAt(watching.in_control_d, SPACING_S);
+        const tested = { value: sign * value, sigma, healthy, degraded: healthy + rule.limit };
+        stepSequential(one.test, tested, one.decision);
+        Object.assign(one, {
+          value: Math.abs(value),
+          sigma: Math.hypot(sigma, factor * known.sigma),
+          time_ms,
+        });
+      }
+      const leans = [now.hot, now.cold].some(
+        ({ test, decision }) => test.degraded || test.up > 0.25 * decision,
+      );
+      if (leans) return;
+      const own = { value: now.difference, sigma: Math.hypot(now.sigma, VALUE_SIGMA) };
+      learnBaseline(now.healthy[run], own, time_ms, watching.baseline_from_ms, RULE);
+    }
+  },
+};
+
+function worse({ hot, cold }: StoreMismatchState): Followed {
+  const ahead =
+    Number(cold.test.degraded) - Number(hot.test.degraded) || cold.test.up - hot.test.up;
+  return ahead > 0 ? cold : hot;
+}
+
+function sentence(
+  unit: string,
+  { value, sigma, test }: Followed,
+  hotHoldsMore: boolean,
+  alone: boolean,
+  limit: number,
+): string {
+  if (alone) return `Unit ${unit}: it has one store, which nothing has to match.`;
+  if (value === null || sigma === null)
+    return `Unit ${unit}: how its stores match shows at the end of a run.`;
+  const figure = `${withSigma(100 * value, 100 * sigma, 1)} % of the rated energy (limit ${(100 * limit).toFixed(0)} %)`;
+  if (!test.degraded)
+    return `Unit ${unit}: at the end of the last run its stores stood ${figure} from their usual difference.`;
+  return (
+    `Unit ${unit}: the ${hotHoldsMore ? 'hot' : 'cold'} store holds ${figure} more than the other can match, ` +
+    'against the usual; it is lost to dispatch until a programme trims it.'
+  );
+}
