@@ -10,10 +10,17 @@ import {
 import { AGREEMENT } from './indicators/agreement.js';
 import { ENERGY_LOST } from './indicators/energyLost.js';
 import { FRONT_TRAVEL } from './indicators/frontTravel.js';
+import { GAS_INVENTORY } from './indicators/gasInventory.js';
 import { HEAT_TRANSFER } from './indicators/heatTransfer.js';
+import { PLATEAU } from './indicators/plateau.js';
+import { PRESSURE_DROP } from './indicators/pressureDrop.js';
 import { SENSOR_HEALTH } from './indicators/sensorHealth.js';
+import { SETTLING } from './indicators/settling.js';
 import { SPREAD } from './indicators/spread.js';
+import { STANDING_LOSS } from './indicators/standingLoss.js';
+import { STORE_MISMATCH } from './indicators/storeMismatch.js';
 import { STRING_FLOW } from './indicators/stringFlow.js';
+import { VALVE_LEAK } from './indicators/valveLeak.js';
 import { INDICATORS_DEFAULT } from './rules.js';
 
 const ALL: readonly Indicator<unknown>[] = [
@@ -24,6 +31,13 @@ const ALL: readonly Indicator<unknown>[] = [
   AGREEMENT,
   ENERGY_LOST,
   SENSOR_HEALTH,
+  STANDING_LOSS,
+  VALVE_LEAK,
+  PRESSURE_DROP,
+  PLATEAU,
+  GAS_INVENTORY,
+  SETTLING,
+  STORE_MISMATCH,
 ];
 
 const placeOf = ({ kind }: Indicator<unknown>): number => INDICATOR_KINDS.indexOf(kind);
@@ -36,11 +50,17 @@ export const INDICATORS: readonly Indicator<unknown>[] = ALL.toSorted(
 /** State of each indicator by kind, made when it is first stepped. Plain and bounded. */
 export type IndicatorStates = Partial<Record<IndicatorKind, unknown>>;
 
+const shipped = new WeakMap<UnitDefinition, IndicatorsDefinition>();
+
 /** How a unit's indicators decide: as configured, else as shipped; the spread ratio has its own block. */
-export function indicatorsOf({ watch }: UnitDefinition): IndicatorsDefinition {
-  if (watch.indicators !== undefined) return watch.indicators;
+export function indicatorsOf(unit: UnitDefinition): IndicatorsDefinition {
+  if (unit.watch.indicators !== undefined) return unit.watch.indicators;
+  const known = shipped.get(unit);
+  if (known !== undefined) return known;
   const { rules, ...rest } = INDICATORS_DEFAULT;
-  return { ...rest, rules: { ...rules, spread_ratio: watch.spread_ratio } };
+  const made = { ...rest, rules: { ...rules, spread_ratio: unit.watch.spread_ratio } };
+  shipped.set(unit, made);
+  return made;
 }
 
 /**
