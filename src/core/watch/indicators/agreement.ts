@@ -1,11 +1,14 @@
 import { heldOf } from '../follow.js';
 import type { Indicator, IndicatorRule, IndicatorView } from '../indicator.js';
+import { isDue, viewed } from './view.js';
 
 interface StringSeen {
   degraded: boolean;
   /** Last time that the string saw the front [ms], and the disagreement then in sigmas. */
   time_ms: number | null;
   value: number | null;
+  /** When it was last shown [ms]. */
+  shown_ms: number | null;
 }
 
 /**
@@ -25,20 +28,31 @@ export const AGREEMENT: Indicator<Record<string, StringSeen>> = {
         const subject = `${id}/${string.id}`;
         const state = heldOf(states, subject, startHeld);
         const shown = views.find((view) => view.id === string.id);
+        let changed = false;
         if (shown?.seen && shown.disagreement !== null) {
-          state.time_ms = input.time_ms;
-          state.value = shown.disagreement;
           const size = Math.abs(shown.disagreement);
+          const before = state.degraded;
           if (size > rule.limit) state.degraded = true;
           else if (size <= rule.limit - rule.deadband) state.degraded = false;
+          changed = state.degraded !== before || isDue(state.shown_ms, input.time_ms);
+          if (changed) {
+            state.value = shown.disagreement;
+            state.time_ms = input.time_ms;
+            state.shown_ms = input.time_ms;
+          }
         }
-        return view(subject, state, rule, layout.sensors >= 2);
+        return viewed(state, rule, changed, () => view(subject, state, rule, layout.sensors >= 2));
       });
     });
   },
 };
 
-const startHeld = (): StringSeen => ({ degraded: false, time_ms: null, value: null });
+const startHeld = (): StringSeen => ({
+  degraded: false,
+  time_ms: null,
+  value: null,
+  shown_ms: null,
+});
 
 function view(
   subject: string,

@@ -1,3 +1,4 @@
+import type { UnitDefinition } from '../../definitions.js';
 import type { StoreModel, StoreState } from '../../track/storeTracker.js';
 import { type FollowRule, type FollowState, follow, followed, startFollow } from '../follow.js';
 import { drawnOut, healthyHours, meanEnthalpy, movedTo } from '../healthyRollout.js';
@@ -9,7 +10,7 @@ import type {
   IndicatorView,
 } from '../indicator.js';
 import { decisionAt } from '../sequential.js';
-import { dayOf, healthyWords, viewOf } from './view.js';
+import { dayOf, healthyWords, viewed, viewOf } from './view.js';
 
 interface Lost {
   /** Share of the rated energy [-]. */
@@ -52,19 +53,22 @@ export const ENERGY_LOST: Indicator<UnitFollow> = {
   kind: 'energy_lost',
   start: () => ({ follow: startFollow(1), last: null, charge: null }),
   step(state, rule, watching, input) {
-    const rules = followRule(rule, watching);
     const { mode } = input.taken.conditions;
     const lost = lostNow(input);
+    let changed = lost !== null;
     if (lost !== null) state.last = lost;
     if (mode === 'charge') {
       if (lost !== null) state.charge = lost;
     } else if (state.charge !== null) {
       // The change of mode itself is rolled out: the fullest there is.
       const { share, sigma, time_ms } = lost ?? state.charge;
-      follow(state.follow, { value: share, sigma }, time_ms, rules);
+      follow(state.follow, { value: share, sigma }, time_ms, followRule(rule, watching));
       state.charge = null;
+      changed = true;
     }
-    return [view(state, rule, rules, input)];
+    return [
+      viewed(state, rule, changed, () => view(state, rule, followRule(rule, watching), input.unit)),
+    ];
   },
 };
 
@@ -119,7 +123,7 @@ function view(
   state: UnitFollow,
   rule: IndicatorRule,
   rules: FollowRule,
-  { unit }: IndicatorInput,
+  unit: UnitDefinition,
 ): IndicatorView {
   const result = followed(state.follow, rules);
   const { last } = state;

@@ -18,7 +18,7 @@ import type {
   IndicatorView,
 } from '../indicator.js';
 import { decisionAt } from '../sequential.js';
-import { bothSides, dayOf, healthyWords, percent, viewOf } from './view.js';
+import { bothSides, dayOf, healthyWords, percent, viewed, viewOf } from './view.js';
 
 interface RunSoFar {
   readonly direction: Direction;
@@ -53,17 +53,30 @@ export const FRONT_TRAVEL: Indicator<Record<string, StoreFollow>> = {
   kind: 'front_travel',
   start: () => ({}),
   step(states, rule, watching, input) {
+    let changed = false;
     const stores = input.model.stores.map((model, s) => {
       const state = heldOf(states, model.store.id, startHeld);
-      const rules = followRule(model, rule, watching);
       const ended = followRun(state, input.state.balances[s] as HeatBalance, input.time_ms);
       if (ended !== null) {
         const sigma = Math.hypot(Math.sqrt(ended.variance), RUN_SIGMA);
-        follow(state.follow, { value: ended.log, sigma }, ended.time_ms, rules);
+        const news = { value: ended.log, sigma };
+        follow(state.follow, news, ended.time_ms, followRule(model, rule, watching));
+        changed = true;
       }
-      return { model, state: state.follow, result: followed(state.follow, rules) };
+      return { model, state };
     });
-    return stores.map((one) => view(one, stores, rule));
+    const whole = () =>
+      stores.map(({ model, state }) => ({
+        model,
+        state: state.follow,
+        result: followed(state.follow, followRule(model, rule, watching)),
+      }));
+    return stores.map(({ state }, s) =>
+      viewed(state, rule, changed, () => {
+        const all = whole();
+        return view(all[s] as StoreView, all, rule);
+      }),
+    );
   },
 };
 

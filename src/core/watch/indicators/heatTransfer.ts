@@ -23,13 +23,16 @@ import {
   startNews,
   tubeFigures,
 } from './news.js';
-import { dayOf, healthyWords, viewOf } from './view.js';
+import { dayOf, healthyWords, isDue, viewed, viewOf } from './view.js';
 
 interface StoreFollow {
   readonly news: NewsState;
   readonly follow: FollowState;
   /** How much faster the filter lets its factor walk than usual, of the last scan. */
   adapt: number;
+  /** ln phi_h as shown, and since when. */
+  now: Known | null;
+  shown_ms: number | null;
 }
 
 /** The filter's own walk of ln phi_h, and how it grows with its surprise: see processNoise. */
@@ -58,15 +61,22 @@ export const HEAT_TRANSFER: Indicator<Record<string, StoreFollow>> = {
       const { id } = model.store;
       const state = heldOf(states, id, startHeld);
       const store = input.state.stores[s] as StoreState;
-      const now = meanTransfer(model, store);
       const moving = input.taken.conditions.flow_kg_s !== 0;
       const walk = moving ? (state.adapt * WALK_PER_SQRT_H) ** 2 * (input.dt_s / 3600) : 0;
-      const rules = followRule(model, rule, watching);
       const scan = { ...scanOf(input, s), walk, dt_s: input.dt_s };
-      const news = newsOf(state.news, now, scan);
+      const news = newsOf(state.news, () => meanTransfer(model, store), scan);
       state.adapt = adaptOf(model, store);
-      if (news !== null) follow(state.follow, news, input.time_ms, rules);
-      return view(model, state.follow, now, rule, rules);
+      const changed = news !== null || isDue(state.shown_ms, input.time_ms);
+      if (news !== null) {
+        follow(state.follow, news, input.time_ms, followRule(model, rule, watching));
+      }
+      if (changed) {
+        state.now = meanTransfer(model, store);
+        state.shown_ms = input.time_ms;
+      }
+      return viewed(state, rule, changed, () =>
+        view(model, state, rule, followRule(model, rule, watching)),
+      );
     });
   },
 };
@@ -75,6 +85,8 @@ const startHeld = (): StoreFollow => ({
   news: startNews(),
   follow: startFollow(1),
   adapt: 1,
+  now: null,
+  shown_ms: null,
 });
 
 function followRule(
@@ -115,12 +127,12 @@ function adaptOf(model: StoreModel, store: StoreState): number {
 
 function view(
   model: StoreModel,
-  state: FollowState,
-  now: Known,
+  { follow: state, now: shown }: StoreFollow,
   rule: IndicatorRule,
   rules: FollowRule,
 ): IndicatorView {
   const { store } = model;
+  const now = shown ?? rules.configured;
   const scale = store.bed.heat_transfer_factor;
   const result = followed(state, rules);
   const healthy = scale * Math.exp(result.healthy.value);

@@ -45,21 +45,22 @@ const FORGOTTEN = 1.5;
  * sound, and where the filter has forgotten, it begins anew.
  *
  * @param state changed in place
+ * @param now asked only where it is needed
  */
-export function newsOf(state: NewsState, now: Known, scan: NewsScan): Known | null {
+export function newsOf(state: NewsState, now: () => Known, scan: NewsScan): Known | null {
   const { before } = state;
-  const walked = state.walkVariance + scan.walk;
-  if (before === null || !scan.sound || now.sigma ** 2 > FORGOTTEN * (before.sigma ** 2 + walked)) {
-    Object.assign(state, startNews(), { before: scan.sound ? { ...now } : null });
+  if (before === null || !scan.sound) {
+    Object.assign(state, startNews(), { before: scan.sound ? now() : null });
     return null;
   }
-  state.walkVariance = walked;
+  state.walkVariance += scan.walk;
   if (!scan.flowing) return null;
   state.flow_s += scan.dt_s;
   if (state.flow_s < NEWS_EVERY_S) return null;
-  const news = newInformation(before, now, state.walkVariance);
-  if (news === null) return null;
-  Object.assign(state, startNews(), { before: { ...now } });
+  const after = now();
+  const forgotten = after.sigma ** 2 > FORGOTTEN * (before.sigma ** 2 + state.walkVariance);
+  const news = forgotten ? null : newInformation(before, after, state.walkVariance);
+  if (forgotten || news !== null) Object.assign(state, startNews(), { before: after });
   return news;
 }
 

@@ -14,7 +14,7 @@ import type {
   IndicatorView,
 } from '../indicator.js';
 import { decisionAt } from '../sequential.js';
-import { dayOf, healthyWords, viewOf } from './view.js';
+import { dayOf, healthyWords, viewed, viewOf } from './view.js';
 
 interface StoreFollow {
   readonly follow: FollowState;
@@ -53,14 +53,17 @@ export const SPREAD: Indicator<Record<string, StoreFollow>> = {
       // Counted anew by the twin where a front has left it.
       state.way_m += travelled >= state.travelled_m ? travelled - state.travelled_m : travelled;
       state.travelled_m = travelled;
-      const rules = followRule(model, rule, watching);
       const spread = input.spread[id] ?? null;
-      if (spread !== null && spread.ratio > 0 && state.way_m >= pitchOf(model)) {
+      const due = spread !== null && spread.ratio > 0 && state.way_m >= pitchOf(model);
+      if (due) {
         state.way_m = 0;
         const sigma = Math.hypot(spread.sigma / spread.ratio, MODEL_SIGMA);
-        follow(state.follow, { value: Math.log(spread.ratio), sigma }, input.time_ms, rules);
+        const news = { value: Math.log(spread.ratio), sigma };
+        follow(state.follow, news, input.time_ms, followRule(model, rule, watching));
       }
-      return view(id, state.follow, rule, rules);
+      return viewed(state, rule, due, () =>
+        view(id, state.follow, rule, followRule(model, rule, watching)),
+      );
     });
   },
 };
@@ -100,8 +103,7 @@ function view(
   const healthy = Math.exp(result.healthy.value);
   const value = Math.exp(state.value ?? 0);
   const sigma = value * (state.sigma ?? 0);
-  const from =
-    result.healthy.from === 'learned' ? healthyWords(state, result.healthy) : 'by the twin';
+  const from = state.baseline.count > 0 ? healthyWords(state, result.healthy) : 'by the twin';
   const is = `Store ${store}: its front is ${value.toFixed(2)} +/- ${sigma.toFixed(2)} times as wide as the healthy twin's, healthy is ${healthy.toFixed(2)}`;
   const bracket = `(${from}; limit ${(rule.limit * healthy).toFixed(2)})`;
   const sentence = {

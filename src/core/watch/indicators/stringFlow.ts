@@ -24,11 +24,14 @@ import {
   startNews,
   tubeFigures,
 } from './news.js';
-import { bothSides, dayOf, healthyWords, percent, viewOf } from './view.js';
+import { bothSides, dayOf, healthyWords, isDue, percent, viewed, viewOf } from './view.js';
 
 interface StringFollow {
   readonly news: NewsState;
   readonly follow: FollowState;
+  /** ln of its flow over the mean as shown, and since when. */
+  now: Known | null;
+  shown_ms: number | null;
 }
 
 /** The filter's own walk of a tube's ln flow factor: see processNoise. */
@@ -52,29 +55,69 @@ export const STRING_FLOW: Indicator<Record<string, StringFollow>> = {
   kind: 'string_flow',
   start: () => ({}),
   step(states, rule, watching, input) {
-    const rules = followRule(rule, watching);
-    const moving = input.taken.conditions.flow_kg_s !== 0;
     return input.model.stores.flatMap((model, s): IndicatorView[] => {
       const { id } = model.store;
       const store = input.state.stores[s] as StoreState;
-      if (model.tubes.length < 2) return [alone(model, rule, rules)];
-      const shares = sharesOf(model, store);
+      if (model.tubes.length < 2) {
+        const only = heldOf(states, `${id}/${model.tubes[0]?.string.id}`, startHeld);
+        return [viewed(only, rule, false, () => alone(model, rule, followRule(rule, watching)))];
+      }
+      const strings = model.tubes.map(({ string }) => ({
+        name: string.id,
+        state: heldOf(states, `${id}/${string.id}`, startHeld),
+      }));
+      // A saved state may know some strings and not others: all are shown anew together.
+      let changed = strings.some(({ state }) => isDue(state.shown_ms, input.time_ms));
       const scan = { ...scanOf(input, s), dt_s: input.dt_s };
-      const strings = model.tubes.map(({ string }, k) => {
-        const state = heldOf(states, `${id}/${string.id}`, startHeld);
-        const share = shares[k] as StringShare;
-        const walk = moving ? share.walk * (input.dt_s / 3600) : 0;
-        const news = newsOf(state.news, share.now, { ...scan, walk });
-        if (news !== null) follow(state.follow, news, input.time_ms, rules);
-        const result = followed(state.follow, rules);
-        return { name: string.id, state: state.follow, now: share.now, result };
+      const hours = input.taken.conditions.flow_kg_s === 0 ? 0 : input.dt_s / 3600;
+      strings.forEach(({ state }, k) => {
+        const now = () => shareOf(model, store, k);
+        const news = newsOf(state.news, now, { ...scan, walk: hours * walkOf(model, k) });
+        if (news === null) return;
+        follow(state.follow, news, input.time_ms, followRule(rule, watching));
+        changed = true;
       });
-      return strings.map((one) => view(id, one, strings, rule));
+      if (changed) {
+        strings.forEach(({ state }, k) => {
+          state.now = shareOf(model, store, k);
+          state.shown_ms = input.time_ms;
+        });
+      }
+      const whole = once(() => describe(strings, followRule(rule, watching)));
+      return strings.map(({ state }, k) =>
+        viewed(state, rule, changed, () => view(id, whole()[k] as StringView, whole(), rule)),
+      );
     });
   },
 };
 
-const startHeld = (): StringFollow => ({ news: startNews(), follow: startFollow(2) });
+const startHeld = (): StringFollow => ({
+  news: startNews(),
+  follow: startFollow(2),
+  now: null,
+  shown_ms: null,
+});
+
+/** A value that is made where it is first asked for. */
+function once<T>(make: () => T): () => T {
+  let made: { value: T } | null = null;
+  return () => {
+    made ??= { value: make() };
+    return made.value;
+  };
+}
+
+function describe(
+  strings: readonly { readonly name: string; readonly state: StringFollow }[],
+  rules: FollowRule,
+): StringView[] {
+  return strings.map(({ name, state }) => ({
+    name,
+    state: state.follow,
+    now: state.now ?? rules.configured,
+    result: followed(state.follow, rules),
+  }));
+}
 
 function followRule(rule: IndicatorRule, watching: IndicatorsDefinition): FollowRule {
   return {
@@ -86,41 +129,36 @@ function followRule(rule: IndicatorRule, watching: IndicatorsDefinition): Follow
   };
 }
 
-interface StringShare {
-  readonly now: Known;
-  /** Variance that the filter adds in an hour of flow. */
-  readonly walk: number;
+/** Variance that the filter adds to a string's figure in an hour of flow: its tubes walk apart. */
+function walkOf(model: StoreModel, k: number): number {
+  let squares = 0;
+  model.tubes.forEach(({ string }, j) => {
+    squares += ((j === k ? 1 : 0) - string.area_share) ** 2;
+  });
+  return squares * WALK_PER_SQRT_H ** 2;
 }
 
 /**
- * ln of each tube's flow over the mean and its sigma, by what of the tubes' variances their common
- * inlets do not explain: d/dln f_j of tube k is (k = j) - w_j f_j/mean.
+ * ln of a tube's flow over the mean and its sigma, by what of the tubes' variances their common inlets
+ * do not explain: d/dln f_j of tube k is (k = j) - w_j f_j/mean.
  */
-function sharesOf(model: StoreModel, store: StoreState): StringShare[] {
-  const tubes = model.tubes.map((tube, k) => {
-    const { layout, at, covariance } = tubeFigures(model, store, k);
+function shareOf(model: StoreModel, store: StoreState, k: number): Known {
+  const tubes = model.tubes.map((tube, j) => {
+    const { layout, at, covariance } = tubeFigures(model, store, j);
     const { flow, inlet } = layout;
     const explained = [inlet.charge_inlet, inlet.discharge_inlet].reduce((sum, i) => {
       const variance = covariance(i, i);
       return variance > 0 ? sum + covariance(flow, i) ** 2 / variance : sum;
     }, 0);
     const own = Math.max(0, covariance(flow, flow) - explained);
-    return { w: tube.string.area_share, log: at(flow), own };
+    return { part: tube.string.area_share * Math.exp(at(flow)), log: at(flow), own };
   });
-  const mean = tubes.reduce((sum, { w, log }) => sum + w * Math.exp(log), 0);
-  return tubes.map(({ log }, k) => {
-    let variance = 0;
-    let squares = 0;
-    tubes.forEach((other, j) => {
-      const slope = (j === k ? 1 : 0) - (other.w * Math.exp(other.log)) / mean;
-      variance += slope * slope * other.own;
-      squares += slope * slope;
-    });
-    return {
-      now: { value: log - Math.log(mean), sigma: Math.sqrt(variance) },
-      walk: squares * WALK_PER_SQRT_H ** 2,
-    };
-  });
+  const mean = tubes.reduce((sum, { part }) => sum + part, 0);
+  const variance = tubes.reduce(
+    (sum, { part, own }, j) => sum + ((j === k ? 1 : 0) - part / mean) ** 2 * own,
+    0,
+  );
+  return { value: (tubes[k]?.log ?? 0) - Math.log(mean), sigma: Math.sqrt(variance) };
 }
 
 interface StringView {

@@ -29,6 +29,41 @@ export function viewOf(
   };
 }
 
+interface Memo {
+  readonly rule: IndicatorRule;
+  readonly view: IndicatorView;
+}
+
+const memos = new WeakMap<object, Memo>();
+
+/**
+ * The view of a state that changes seldom: a sentence costs more than all that is followed in a scan. It
+ * follows from the state alone, so that a restored one gives the same.
+ *
+ * @param changed whether the state has changed since the last call in what the view shows
+ */
+export function viewed(
+  state: object,
+  rule: IndicatorRule,
+  changed: boolean,
+  make: () => IndicatorView,
+): IndicatorView {
+  const known = memos.get(state);
+  if (known !== undefined && known.rule === rule && !changed) return known.view;
+  const view = make();
+  memos.set(state, { rule, view });
+  return view;
+}
+
+/** Figures that change with every scan are shown anew this often, by source time [ms]. */
+const SHOW_EVERY_MS = 600_000;
+
+/** True where a figure last shown at a time is to be shown anew. */
+export function isDue(shown_ms: number | null, time_ms: number): boolean {
+  if (shown_ms === null) return true;
+  return Math.floor(time_ms / SHOW_EVERY_MS) !== Math.floor(shown_ms / SHOW_EVERY_MS);
+}
+
 /** ISO 8601 UTC of a source time, null where there is none. */
 export function dayOf(time_ms: number | null): string | null {
   return time_ms === null ? null : new Date(time_ms).toISOString();
@@ -43,7 +78,7 @@ export function healthyWords(state: FollowState, healthy: Healthy): string {
     return kept ? `as learned ${span}` : `as learned so far, ${span}`;
   }
   if (from_ms !== null)
-    return 'the least that its configuration allows; what was learned is beyond it';
+    return 'as far as its configuration allows, which it was beyond from the start';
   return 'as configured';
 }
 
