@@ -7,7 +7,7 @@ import { figuresText, listText } from './alarmText.js';
 import { askDaemon } from './daemonAnswer.js';
 import { parseDuration_s, parsePoint_ms } from './values.js';
 
-interface AlarmOptions {
+export interface AlarmOptions {
   readonly url: string;
   readonly unit?: string;
   readonly acknowledge?: string;
@@ -39,8 +39,11 @@ const usage = (words: string) => new RockhourError('USAGE', words);
 const flag = (name: string) =>
   `--${name.replace(/[A-Z]/g, (letter) => `-${letter.toLowerCase()}`)}`;
 
-/** @throws RockhourError USAGE where options do not go together */
-function chosen(options: AlarmOptions): (typeof ACTIONS)[number] | null {
+/**
+ * What is to be done, null where something is to be read.
+ * @throws RockhourError USAGE where options do not go together
+ */
+export function chosenAction(options: AlarmOptions): (typeof ACTIONS)[number] | null {
   const given = ACTIONS.filter(([name]) => options[name] !== undefined);
   const [first, second] = given;
   if (first !== undefined && second !== undefined)
@@ -93,7 +96,7 @@ async function act(
 }
 
 async function alarms(options: AlarmOptions): Promise<void> {
-  const action = chosen(options);
+  const action = chosenAction(options);
   const { url, unit } = options;
   let answer: unknown;
   let text: string;

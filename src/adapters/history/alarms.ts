@@ -42,11 +42,14 @@ const SELECT = 'SELECT id, unit, kind, alarm, event FROM alarms';
 export class Alarms {
   /** Mode of each unit by its newest scan; unknown until there is one. */
   private readonly modes = new Map<string, Mode>();
+  private readonly statements: ReturnType<typeof statementsOf>;
 
   constructor(
     private readonly database: Database,
     private readonly rules: AlarmRules,
-  ) {}
+  ) {
+    this.statements = statementsOf(database);
+  }
 
   /** Holds what is stored against the configuration, once at a start. */
   start(now_ms: number): void {
@@ -84,9 +87,7 @@ export class Alarms {
   scan(unit: string, mode: Mode, time_ms: number): boolean {
     this.modes.set(unit, mode);
     let changed = this.passTime(time_ms, unit).length > 0;
-    const rows = this.database
-      .prepare(`${SELECT} WHERE unit = ? AND kind IN (${marks(RULED)})`)
-      .all(unit, ...RULED) as AlarmRow[];
+    const rows = this.statements.ruled.all(unit, ...RULED) as AlarmRow[];
     for (const row of rows) {
       const { state, suppressed } = JSON.parse(row.alarm) as AlarmState;
       const isShown = state !== 'normal' && !isHeldBack(state);
@@ -100,9 +101,7 @@ export class Alarms {
 
   /** Lets shelves run out, of one unit or of all; the units in which one did. */
   passTime(now_ms: number, unit?: string): string[] {
-    const rows = this.database
-      .prepare(`${SELECT} WHERE until <= ? AND (? IS NULL OR unit = ?)`)
-      .all(now_ms, unit ?? null, unit ?? null) as AlarmRow[];
+    const rows = this.statements.due.all(now_ms, unit ?? null, unit ?? null) as AlarmRow[];
     for (const row of rows) this.step(row, { kind: 'time' }, now_ms);
     return [...new Set(rows.map((row) => row.unit))];
   }
@@ -205,24 +204,11 @@ export class Alarms {
 
   private store(row: AlarmRow, state: AlarmState, transition: AlarmTransition | null): AlarmRow {
     const stored = { ...row, alarm: JSON.stringify(state) };
-    if (isForgettable(state)) {
-      this.database.prepare('DELETE FROM alarms WHERE id = ?').run(row.id);
-    } else {
-      this.database
-        .prepare(
-          `INSERT OR REPLACE INTO alarms (id, unit, kind, state, until, alarm, event)
-           VALUES (@id, @unit, @kind, @state, @until, @alarm, @event)`,
-        )
-        .run({ ...stored, state: state.state, until: state.shelf?.until_ms ?? null });
-    }
-    if (transition) {
-      this.database
-        .prepare(
-          `INSERT INTO alarm_transitions (id, unit, kind, time, what, before, after, who, why)
-           VALUES (@id, @unit, @kind, @time_ms, @what, @before, @after, @who, @why)`,
-        )
-        .run({ ...transition, id: row.id, unit: row.unit, kind: row.kind });
-    }
+    const { drop, put, record } = this.statements;
+    if (isForgettable(state)) drop.run(row.id);
+    else put.run({ ...stored, state: state.state, until: state.shelf?.until_ms ?? null });
+    const { id, unit, kind } = row;
+    if (transition) record.run({ ...transition, id, unit, kind });
     return stored;
   }
 
@@ -242,8 +228,26 @@ export class Alarms {
   }
 
   private row(id: string): AlarmRow | undefined {
-    return this.database.prepare(`${SELECT} WHERE id = ?`).get(id) as AlarmRow | undefined;
+    return this.statements.row.get(id) as AlarmRow | undefined;
   }
+}
+
+/** What is asked with every event and every scan, made ready once. */
+function statementsOf(database: Database) {
+  return {
+    row: database.prepare(`${SELECT} WHERE id = ?`),
+    ruled: database.prepare(`${SELECT} WHERE unit = ? AND kind IN (${marks(RULED)})`),
+    due: database.prepare(`${SELECT} WHERE until <= ? AND (? IS NULL OR unit = ?)`),
+    drop: database.prepare('DELETE FROM alarms WHERE id = ?'),
+    put: database.prepare(
+      `INSERT OR REPLACE INTO alarms (id, unit, kind, state, until, alarm, event)
+       VALUES (@id, @unit, @kind, @state, @until, @alarm, @event)`,
+    ),
+    record: database.prepare(
+      `INSERT INTO alarm_transitions (id, unit, kind, time, what, before, after, who, why)
+       VALUES (@id, @unit, @kind, @time_ms, @what, @before, @after, @who, @why)`,
+    ),
+  };
 }
 
 function entryOfRow({ id, unit, kind, alarm, event }: AlarmRow): AlarmEntry {

@@ -358,6 +358,13 @@ describe('the good answers, each held against the schema that documents it', () 
     expect(Object.keys(document.paths).sort()).toEqual([
       '/api/alarms',
       '/api/alarms/acknowledge',
+      '/api/alarms/figures',
+      '/api/alarms/out-of-service',
+      '/api/alarms/reset',
+      '/api/alarms/return-to-service',
+      '/api/alarms/shelve',
+      '/api/alarms/transitions',
+      '/api/alarms/unshelve',
       '/api/counters',
       '/api/events',
       '/api/health',
@@ -366,6 +373,7 @@ describe('the good answers, each held against the schema that documents it', () 
       '/api/units/{unit}',
       '/api/units/{unit}/balance',
       '/api/units/{unit}/capability',
+      '/api/units/{unit}/cycles',
       '/api/units/{unit}/headroom',
       '/api/units/{unit}/history',
       '/api/units/{unit}/hours',
@@ -376,6 +384,7 @@ describe('the good answers, each held against the schema that documents it', () 
       '/api/units/{unit}/profile',
       '/api/units/{unit}/schedule',
       '/api/units/{unit}/sensors',
+      '/api/units/{unit}/watch',
       '/metrics',
     ]);
     const hours = document.paths['/api/units/{unit}/hours'].get;

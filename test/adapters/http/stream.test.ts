@@ -158,6 +158,26 @@ describe('the live stream', () => {
     back.close();
   });
 
+  it('sends a storm of events as some of them and the number of the rest, and cuts nobody off', async () => {
+    await serve();
+    const client = stream();
+    await waitFor('hello', () => client.of('hello').length === 1);
+    for (let n = 0; n < 10_000; n++) plant.raise({ kind: 'sensor_rejected', subject: `t${n}` });
+    const leftOut = () =>
+      client
+        .of('alarms')
+        .reduce((sum, { data }) => sum + ((data as { left_out?: number }).left_out ?? 0), 0);
+    await waitFor('all are told', () => client.of('event').length + leftOut() === 10_000);
+    expect(client.of('event').length).toBeLessThanOrEqual(300);
+    expect(client.of('alarms').length).toBeLessThan(1000);
+    expect(client.of('hello')).toHaveLength(1);
+    // Once it is over each event is sent again.
+    await new Promise((resolve) => setTimeout(resolve, 1100));
+    const before = client.of('event').length;
+    plant.raise({ kind: 'front_spread', subject: 'hot' });
+    await waitFor('the next', () => client.of('event').length === before + 1);
+  });
+
   it('tells every client when one has acknowledged', async () => {
     await serve();
     const client = stream();
