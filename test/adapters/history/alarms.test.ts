@@ -1,0 +1,307 @@
+import { join } from 'node:path';
+import SQLite from 'better-sqlite3';
+import { describe, expect, it } from 'vitest';
+import { CONFIGURATION } from '../../../src/adapters/history/alarms.js';
+import { History } from '../../../src/adapters/history/history.js';
+import { HISTORY_SCHEMA } from '../../../src/adapters/history/schema.js';
+import type { AlarmCommand } from '../../../src/core/alarm/command.js';
+import type { EventKind, WatchEvent } from '../../../src/core/watch/event.js';
+import { KIND_CLASSES } from '../../../src/core/watch/kinds.js';
+import { temporaryFolder } from '../../support/folders.js';
+
+const T = Date.UTC(2026, 0, 31);
+const H = 3_600_000;
+const STORE = {
+  folder: '.',
+  keep_readings_days: 30,
+  keep_estimates_days: 365,
+  thin_after_days: 30,
+  thin_to_s: 600,
+  checkpoint_every_s: 600,
+};
+
+function opened(
+  rules?: ConstructorParameters<typeof History>[2],
+  folder = temporaryFolder('alarms'),
+) {
+  const history = new History(join(folder, 'history.sqlite'), STORE, rules);
+  history.start();
+  const { events, alarms } = history;
+  const raise = (kind: EventKind, time_ms: number, subject = 'hot', transition = 'raised') =>
+    events.add({
+      ...{ id: `u/${kind}/${subject}`, unit: 'u', kind, ...KIND_CLASSES[kind], subject },
+      ...{ time: new Date(time_ms).toISOString(), value: 1, limit: 2, message: 'it is so' },
+      transition: transition as WatchEvent['transition'],
+    });
+  const giveBack = (kind: EventKind, time_ms: number, subject?: string) =>
+    raise(kind, time_ms, subject, 'returned');
+  const say = (action: AlarmCommand['action'], id: string, now_ms: number, hours = 2) =>
+    alarms.command({ id, action, who: 'mara', hours, why: 'because' }, now_ms);
+  const states = () => alarms.entries().map(({ id, state }) => `${id} ${state}`);
+  const walked = () =>
+    alarms.transitions({}, 0, 1e15, 1e6).map((one) => `${one.what} ${one.before} ${one.after}`);
+  return { history, folder, events, alarms, raise, giveBack, say, states, walked };
+}
+
+describe('alarms in the history', () => {
+  it('keep every transition with time, who and why, newest first', () => {
+    const { alarms, raise, giveBack, say } = opened();
+    raise('front_spread', T);
+    say('acknowledge', 'u/front_spread/hot', T + 1000);
+    giveBack('front_spread', T + 2000);
+    const [last, word, first] = alarms.transitions({ unit: 'u' }, T, T + 9000, 9);
+    expect(first).toEqual({
+      ...{ id: 'u/front_spread/hot', unit: 'u', kind: 'front_spread' },
+      ...{ time: '2026-01-31T00:00:00.000Z', what: 'raised', who: null, why: '' },
+      ...{ before: 'normal', after: 'unacknowledged' },
+    });
+    expect(word).toMatchObject({ what: 'acknowledged', who: 'mara', why: 'because' });
+    expect(last).toMatchObject({ what: 'returned', before: 'acknowledged', after: 'normal' });
+    expect(alarms.transitions({ unit: 'other' }, 0, 1e15, 9)).toEqual([]);
+    expect(alarms.transitions({ id: 'u/front_spread/hot' }, T, T, 9)).toHaveLength(1);
+  });
+
+  it('come back from a file to the last key, shelves and service included', () => {
+    const first = opened();
+    first.raise('front_spread', T);
+    first.raise('valve_leaks', T);
+    first.raise('gas_lost', T, 'u');
+    first.say('shelve', 'u/front_spread/hot', T + 1000, 3);
+    first.say('out_of_service', 'u/valve_leaks/hot', T + 1000);
+    first.say('acknowledge', 'u/gas_lost/u', T + 1000);
+    const before = first.alarms.entries();
+    first.history.stop();
+    const { alarms, history } = opened(undefined, first.folder);
+    expect(alarms.entries()).toEqual(before);
+    expect(alarms.entry('u/front_spread/hot')).toMatchObject({
+      ...{ state: 'shelved', letter: 'G', active: true },
+      shelved: { by: 'mara', why: 'because', until: new Date(T + 1000 + 3 * H).toISOString() },
+    });
+    expect(alarms.passTime(T + 3 * H)).toEqual([]);
+    expect(alarms.passTime(T + 1000 + 3 * H)).toEqual(['u']);
+    expect(alarms.entry('u/front_spread/hot')).toMatchObject({ state: 'unacknowledged' });
+    history.stop();
+  });
+
+  it('have their time on the shelf run out by the source time of a scan, too', () => {
+    const { alarms, raise, say, states } = opened();
+    raise('front_spread', T);
+    say('shelve', 'u/front_spread/hot', T, 1);
+    expect(alarms.scan('u', 'stand', T + H - 1)).toBe(false);
+    expect(alarms.scan('other', 'stand', T + 2 * H)).toBe(false);
+    expect(alarms.scan('u', 'stand', T + H)).toBe(true);
+    expect(states()).toEqual(['u/front_spread/hot unacknowledged']);
+  });
+
+  it('can be shelved or out of service before they are raised, and are known by their id', () => {
+    const { alarms, raise, say } = opened();
+    expect(say('shelve', 'u/front_spread/hot', T)).toBeNull();
+    expect(alarms.entry('u/front_spread/hot')).toMatchObject({ state: 'shelved', subject: 'hot' });
+    raise('front_spread', T + 1);
+    expect(alarms.entry('u/front_spread/hot')).toMatchObject({ active: true, message: 'it is so' });
+    expect(say('unshelve', 'u/front_spread/hot', T + 2)).toBeNull();
+    expect(alarms.entry('u/front_spread/hot')).toMatchObject({ state: 'unacknowledged' });
+    expect(say('shelve', 'nothing', T)).toBe('there is no such alarm or alert');
+    expect(say('return_to_service', 'u/front_spread/hot', T)).toBe('it is not out of service');
+  });
+
+  it('acknowledged twice keep the first name, and no second transition', () => {
+    const { alarms, raise, walked } = opened();
+    raise('front_spread', T);
+    const word = (who: string) =>
+      alarms.command(
+        { id: 'u/front_spread/hot', action: 'acknowledge', who, hours: null, why: '' },
+        T + 1,
+      );
+    expect([word('mara'), word('ole')]).toEqual([null, null]);
+    expect(alarms.entries()).toMatchObject([{ acknowledged_by: 'mara' }]);
+    expect(walked()).toHaveLength(2);
+  });
+});
+
+describe('rules of the design', () => {
+  it('take discharge alarms off the list when the discharge ends, and bring back what stands', () => {
+    const { alarms, raise, giveBack, states } = opened();
+    const stands = 'u/outlet_near_limit/hot';
+    alarms.scan('u', 'discharge', T);
+    raise('outlet_near_limit', T);
+    expect(states()).toEqual([`${stands} unacknowledged`]);
+    expect(alarms.scan('u', 'stand', T + 1000)).toBe(true);
+    expect(alarms.scan('u', 'stand', T + 2000)).toBe(false);
+    expect(states()).toEqual([`${stands} suppressed_by_design`]);
+    alarms.scan('u', 'discharge', T + 3000);
+    expect(states()).toEqual([`${stands} unacknowledged`]);
+    alarms.scan('u', 'stand', T + 4000);
+    giveBack('outlet_near_limit', T + 5000);
+    // Nobody has seen it: it is shown as returned once the rule has ended.
+    expect(states()).toEqual([`${stands} suppressed_by_design`]);
+    alarms.scan('u', 'discharge', T + 6000);
+    expect(states()).toEqual([`${stands} returned_unacknowledged`]);
+  });
+
+  it('hold back what comes up under them, and forget what goes again', () => {
+    const { alarms, raise, giveBack, states, walked } = opened();
+    alarms.scan('u', 'stand', T);
+    raise('string_flow_uneven', T + 1);
+    expect(states()).toEqual(['u/string_flow_uneven/hot suppressed_by_design']);
+    giveBack('string_flow_uneven', T + 2);
+    expect(states()).toEqual([]);
+    expect(walked().reverse()).toEqual([
+      'suppressed_by_design normal suppressed_by_design',
+      'raised suppressed_by_design suppressed_by_design',
+      'returned suppressed_by_design suppressed_by_design',
+    ]);
+    raise('string_flow_uneven', T + 3);
+    alarms.scan('u', 'charge', T + 4);
+    expect(states()).toEqual(['u/string_flow_uneven/hot unacknowledged']);
+  });
+
+  it('leave alerts of the bed alone that stand already, so that no start makes them new', () => {
+    const { alarms, raise, say, states } = opened();
+    alarms.scan('u', 'charge', T);
+    raise('string_flow_uneven', T);
+    say('acknowledge', 'u/string_flow_uneven/hot', T + 1);
+    for (let k = 0; k < 6; k++) alarms.scan('u', k % 2 ? 'charge' : 'stand', T + 2 + k);
+    expect(states()).toEqual(['u/string_flow_uneven/hot acknowledged']);
+  });
+
+  it('are not known before the first scan of a process, and hold nothing back then', () => {
+    const { raise, states } = opened();
+    raise('outlet_near_limit', T);
+    expect(states()).toEqual(['u/outlet_near_limit/hot unacknowledged']);
+  });
+});
+
+describe('what the configuration says', () => {
+  const named = { latching: [], out_of_service: ['sensor_rejected/hot_a_1', 'gas_lost'] };
+
+  it('takes out of service what it names, once it is raised, and back when it names it no more', () => {
+    const first = opened(named);
+    first.raise('sensor_rejected', T, 'hot_a_1');
+    first.raise('sensor_rejected', T, 'hot_a_2');
+    expect(first.states()).toEqual([
+      'u/sensor_rejected/hot_a_1 out_of_service',
+      'u/sensor_rejected/hot_a_2 unacknowledged',
+    ]);
+    expect(first.alarms.entries()[0]!.out_of_service!.by).toBe(CONFIGURATION);
+    first.history.stop();
+    const again = opened({ latching: [], out_of_service: [] }, first.folder);
+    again.alarms.start(T + 5);
+    expect(again.states()).toEqual([
+      'u/sensor_rejected/hot_a_1 unacknowledged',
+      'u/sensor_rejected/hot_a_2 unacknowledged',
+    ]);
+    again.history.stop();
+    const third = opened(named, first.folder);
+    third.alarms.start(T + 6);
+    expect(third.states()[0]).toBe('u/sensor_rejected/hot_a_1 out_of_service');
+  });
+
+  it('does not take back what a person took out of service', () => {
+    const { alarms, raise, say, states } = opened();
+    raise('valve_leaks', T);
+    say('out_of_service', 'u/valve_leaks/hot', T + 1);
+    alarms.start(T + 2);
+    expect(states()).toEqual(['u/valve_leaks/hot out_of_service']);
+  });
+
+  it('makes kinds latch: they stay until acknowledged and reset', () => {
+    const { raise, giveBack, say, states } = opened({
+      latching: ['bed_settled'],
+      out_of_service: [],
+    });
+    raise('bed_settled', T);
+    giveBack('bed_settled', T + 1);
+    expect(states()).toEqual(['u/bed_settled/hot latched_unacknowledged']);
+    expect(say('reset', 'u/bed_settled/hot', T + 2)).toBe('acknowledge it first');
+    say('acknowledge', 'u/bed_settled/hot', T + 3);
+    expect(say('reset', 'u/bed_settled/hot', T + 4)).toBeNull();
+    expect(states()).toEqual([]);
+  });
+});
+
+describe('a storm of 10,000 flapping conditions', () => {
+  it('loses no event, and has one entry per id', () => {
+    const { history, alarms } = opened();
+    const IDS = 500;
+    const FLAPS = 20;
+    const started = performance.now();
+    history.write(() => {
+      for (let n = 0; n < IDS * FLAPS; n++) {
+        const [id, flap] = [n % IDS, Math.floor(n / IDS)];
+        const subject = `t${id}`;
+        history.events.add({
+          ...{ id: `u/sensor_rejected/${subject}`, unit: 'u', kind: 'sensor_rejected', subject },
+          ...{ class: 'alert', priority: 'low', value: null, limit: null, message: 'flaps' },
+          time: new Date(T + 1000 * flap).toISOString(),
+          transition: flap % 2 === 0 ? 'raised' : 'returned',
+        });
+      }
+    });
+    expect(performance.now() - started).toBeLessThan(10_000);
+    expect(history.events.between('u', T, T + 1e6, 1e6)).toHaveLength(10_000);
+    expect(alarms.transitions({}, T, T + 1e6, 1e6)).toHaveLength(10_000);
+    expect(alarms.entries()).toHaveLength(IDS);
+    expect(new Set(alarms.entries().map(({ state }) => state))).toEqual(
+      new Set(['returned_unacknowledged']),
+    );
+    // Half of them raise: each is one that was shown anew.
+    expect(alarms.annunciations('u', 'alert', T, T + 1e6)).toHaveLength(5_000);
+    expect(alarms.annunciations('u', 'alarm', T, T + 1e6)).toEqual([]);
+  });
+});
+
+describe('a history of an older version', () => {
+  it('keeps what stood, who acknowledged it, and what had happened', () => {
+    const folder = temporaryFolder('alarms');
+    const file = join(folder, 'history.sqlite');
+    const old = new SQLite(file);
+    for (const step of HISTORY_SCHEMA.slice(0, 2)) old.exec(step);
+    old.pragma('user_version = 2');
+    const event = (kind: EventKind, subject: string, transition: string, at: number) => ({
+      ...{
+        id: `u/${kind}/${subject}`,
+        unit: 'u',
+        kind,
+        ...KIND_CLASSES[kind],
+        subject,
+        transition,
+      },
+      ...{ time: new Date(T + at).toISOString(), value: 1.5, limit: 1.3, message: 'wide' },
+    });
+    const stood = [
+      [event('front_spread', 'hot', 'raised', 123), 'acknowledged', 'mara'],
+      [event('sensor_rejected', 'h_1', 'raised', 7), 'unacknowledged', null],
+      [event('front_view_disagrees', 'hot/a', 'raised', 9), 'returned_unacknowledged', null],
+    ] as const;
+    stood.forEach(([one, state, by], i) => {
+      const json = JSON.stringify(one);
+      old.prepare('INSERT INTO standing VALUES (?, ?, ?, ?, ?)').run(one.id, 'u', state, by, json);
+      old
+        .prepare('INSERT INTO events VALUES (?, ?, ?, ?, ?, ?)')
+        .run(i + 1, 'u', one.id, Date.parse(one.time), 'raised', json);
+    });
+    old
+      .prepare('INSERT INTO acknowledgements (id, who, time) VALUES (?, ?, ?)')
+      .run('u/front_spread/hot', 'mara', T + 500);
+    old.close();
+    const { alarms, giveBack, say, states } = opened(undefined, folder);
+    expect(alarms.entries().sort((a, b) => a.id.localeCompare(b.id))).toMatchObject([
+      {
+        ...{ id: 'u/front_spread/hot', state: 'acknowledged', acknowledged_by: 'mara' },
+        ...{ active: true, since: new Date(T + 500).toISOString(), message: 'wide', value: 1.5 },
+      },
+      { id: 'u/front_view_disagrees/hot/a', state: 'returned_unacknowledged', active: false },
+      { id: 'u/sensor_rejected/h_1', state: 'unacknowledged', active: true },
+    ]);
+    expect(alarms.transitions({}, T, T + 1000, 9)).toMatchObject([
+      { what: 'acknowledged', who: 'mara', kind: 'front_spread', unit: 'u' },
+      { what: 'raised', kind: 'front_spread', before: null, after: 'unacknowledged' },
+      { what: 'raised', kind: 'front_view_disagrees' },
+      { what: 'raised', kind: 'sensor_rejected' },
+    ]);
+    giveBack('front_spread', T + 2000);
+    say('acknowledge', 'u/front_view_disagrees/hot/a', T + 2000);
+    expect(states()).toEqual(['u/sensor_rejected/h_1 unacknowledged']);
+  });
+});
