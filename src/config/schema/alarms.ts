@@ -29,14 +29,14 @@ export const alarmsSchema = z.strictObject({
     '-',
     'Alarms and alerts that are out of service: kinds, KIND/SUBJECT or UNIT/KIND/SUBJECT.',
     ['database_unreachable', 'sensor_rejected/hot_a_3'],
-    'none',
+    'all are in service',
   ).default([]),
   latching: key(
     z.array(z.enum(EVENT_KINDS)).max(EVENT_KINDS.length),
     '-',
     'Kinds that stay in the list after their return until somebody has looked and resets them.',
     ['bed_settled'],
-    'none',
+    'no kind latches',
   ).default([]),
 });
 
