@@ -1,34 +1,29 @@
-import { existsSync } from 'node:fs';
 import { join } from 'node:path';
-import { fileURLToPath } from 'node:url';
 import { FolderLock } from './adapters/history/folderLock.js';
 import { History } from './adapters/history/history.js';
 import { Journal } from './adapters/history/journal.js';
-import { headOf } from './adapters/http/planHead.js';
 import { createHttpServer } from './adapters/http/server.js';
 import type { HealthPart, PlantService } from './adapters/http/service.js';
 import { Intake } from './adapters/mqtt/intake.js';
 import type { SiteConfig } from './config/site.js';
-import type { UnitDefinition } from './core/definitions.js';
-import type { DispatchAnswer } from './core/estimate.js';
-import { limitedAnswers } from './core/plan/limitedBy.js';
-import { shortTable } from './core/plan/offerSummary.js';
 import { AlarmPart, DEFAULT_ALARMS } from './daemon/alarmPart.js';
+import { catchUp } from './daemon/catchUp.js';
 import { type DaemonClock, SteadyClock, wallClock } from './daemon/clock.js';
 import { type Core, realCore } from './daemon/core.js';
 import { Counters } from './daemon/counters.js';
 import { DatabasePart } from './daemon/databasePart.js';
-import { HeadroomOnHours } from './daemon/headroomOnHours.js';
 import { brokerHealth, storeHealth, unitHealth } from './daemon/health.js';
-import { HoursOnChange } from './daemon/hoursOnChange.js';
 import { Housekeeping } from './daemon/housekeeping.js';
+import { makeRunners } from './daemon/makeRunners.js';
 import { MqttPart } from './daemon/mqttPart.js';
 import { Notices } from './daemon/notices.js';
 import { NotifyPart } from './daemon/notifyPart.js';
+import { pageFolder } from './daemon/pageFolder.js';
 import { Pipeline } from './daemon/pipeline.js';
-import { DaemonService, type KeptTable } from './daemon/plantService.js';
+import { DaemonService } from './daemon/plantService.js';
 import { Questions } from './daemon/questions.js';
-import { type RunnerStep, UnitRunner } from './daemon/unitRunner.js';
+import { Speaker } from './daemon/speaker.js';
+import type { UnitRunner } from './daemon/unitRunner.js';
 import type { Log } from './log.js';
 
 export type { PlantService } from './adapters/http/service.js';
@@ -70,14 +65,6 @@ export interface Daemon {
   caughtUp(): Promise<void>;
 }
 
-const CLOCK_TOLERANCE_S = 300;
-/** A longer gap is handed to the core in one, which bridges it itself. */
-const LONGEST_GAP_SCANS = 2000;
-/** Readings at the end of the journal that the broker may send again. */
-const REMEMBER_READINGS = 20_000;
-/** A replay at the start that is longer than this is told [journal entries]. */
-const LONG_REPLAY = 5000;
-
 /** Builds a daemon from a site; nothing acts before `start`. The one place where all meets. */
 export function createDaemon(site: SiteConfig, options: DaemonOptions): Daemon {
   return new RockhourDaemon(site, options);
@@ -99,8 +86,7 @@ class RockhourDaemon implements Daemon {
   private readonly database: DatabasePart | null;
   private readonly notify: NotifyPart;
   private readonly housekeeping: Housekeeping;
-  private readonly hoursOnChange: HoursOnChange;
-  private readonly headroomOnHours: HeadroomOnHours;
+  private readonly speaker: Speaker;
   /** What has been started, to be ended in reverse order. */
   private readonly ending: (() => void | Promise<void>)[] = [];
   private places: Promise<DaemonPlaces> | null = null;
@@ -133,7 +119,7 @@ class RockhourDaemon implements Daemon {
       runners: [...this.runners.values()],
       steady: new SteadyClock(clock, 4 * poll_ms * clock.speed),
       checkpoint_every_ms: site.store.checkpoint_every_s * 1000,
-      stepped: (runner, step) => this.stepped(runner, step),
+      stepped: (runner, step) => this.speaker.stepped(runner, step),
       event: (event) => this.alarms.event(event),
       alarmsMoved: (unit) => this.alarms.moved(unit),
     });
@@ -185,24 +171,17 @@ class RockhourDaemon implements Daemon {
       poll_ms,
       forwarded: () => this.database?.cursor ?? Number.POSITIVE_INFINITY,
     });
-    this.hoursOnChange = new HoursOnChange({
-      ...{ questions: this.questions, history, notices },
-      answered: (runner, dispatch) => {
-        this.sayHours(runner.unit, dispatch.time, dispatch.answers);
-        this.service.tell({ kind: 'state', unit: runner.unit.id });
-      },
-    });
-    this.headroomOnHours = new HeadroomOnHours({
-      ...{ questions: this.questions, notices, now: () => performance.now() },
-      answered: ({ unit, view }, { time, answers }) => {
-        const head = headOf(unit, time, view.estimate?.quality ?? 'blind');
-        this.mqtt.announcer.headroom({ ...head, answers });
-      },
+    this.speaker = new Speaker({
+      ...{ questions: this.questions, history, notices, runners: this.runners },
+      announcer: () => this.mqtt.announcer,
+      backlog: () => this.pipeline.backlog,
+      newestKept: (unit) => this.service.newestKept(unit),
+      changed: (unit) => this.service.tell({ kind: 'state', unit }),
     });
     this.service = new DaemonService({
       ...{ siteName: site.name, version, runners: this.runners, history, counters, clock },
       questions: this.questions,
-      kept: (unit, table) => this.sayOffers(unit, table),
+      kept: (unit, table) => this.speaker.sayOffers(unit, table),
       health: () => this.health(),
       alarms: this.alarms,
     });
@@ -254,9 +233,9 @@ class RockhourDaemon implements Daemon {
       () => history.stop(),
     );
     this.ending.push(() => this.questions.stop());
-    this.ending.push(() => this.headroomOnHours.stop());
+    this.ending.push(() => this.speaker.stop());
     await this.begin(
-      () => this.replay(),
+      () => catchUp(journal, this.intake, pipeline, this.log),
       () => pipeline.stop(),
     );
     await this.begin(
@@ -274,7 +253,7 @@ class RockhourDaemon implements Daemon {
       () => this.notify.start(),
       () => this.notify.stop(),
     );
-    this.restate();
+    this.speaker.restate();
     await this.begin(
       () => mqtt.startLink(),
       () => mqtt.stopLink(),
@@ -299,20 +278,6 @@ class RockhourDaemon implements Daemon {
     for (let end = this.ending.pop(); end; end = this.ending.pop()) await end();
   }
 
-  /** Restores the units and takes in what the journal has since. */
-  private async replay(): Promise<void> {
-    const { journal, intake, pipeline } = this;
-    for (let seq = Math.max(0, journal.lastSeq - REMEMBER_READINGS); seq < journal.lastSeq; ) {
-      const entries = journal.read(seq, 1000);
-      seq = entries.at(-1)?.seq ?? journal.lastSeq;
-      intake.remember(entries.filter((entry) => entry.kind === 'reading'));
-    }
-    pipeline.start();
-    const { backlog } = pipeline;
-    if (backlog > LONG_REPLAY) this.log.info(`replays ${backlog} entries of the journal`);
-    await pipeline.caughtUp();
-  }
-
   private async startHttp(): Promise<string> {
     const server = createHttpServer(this.service, this.site.http, {
       log: this.log,
@@ -320,39 +285,6 @@ class RockhourDaemon implements Daemon {
     });
     this.ending.push(() => server.stop());
     return (await server.start()).url;
-  }
-
-  /** What was last said before this start is said again. */
-  private restate(): void {
-    const { announcer } = this.mqtt;
-    for (const [id, { unit, view }] of this.runners) {
-      if (view.estimate) announcer.state(view.estimate);
-      if (view.watch) announcer.watch(view.watch);
-      if (view.dispatch) this.sayHours(unit, view.dispatch.time, view.dispatch.answers);
-      const table = this.service.newestKept(id);
-      if (table) this.sayOffers(id, table);
-    }
-  }
-
-  private stepped(runner: UnitRunner, { step }: RunnerStep): void {
-    const { estimate } = step;
-    const { announcer } = this.mqtt;
-    announcer.state(estimate);
-    if (step.watch) announcer.watch(step.watch);
-    this.hoursOnChange.stepped(runner, estimate, this.pipeline.backlog);
-    this.headroomOnHours.stepped(runner, estimate, this.pipeline.backlog);
-    if (estimate.dispatch) this.sayHours(runner.unit, estimate.time, estimate.dispatch);
-    this.service.tell({ kind: 'state', unit: runner.unit.id });
-  }
-
-  /** Hours with what limits them: the machine, the connection, an outage. */
-  private sayHours(unit: UnitDefinition, time: string, answers: readonly DispatchAnswer[]): void {
-    this.mqtt.announcer.dispatch(unit.id, time, limitedAnswers(unit, time, answers));
-  }
-
-  private sayOffers(unit: string, { no, asked_ms, answer }: KeptTable): void {
-    const asked = new Date(asked_ms).toISOString();
-    this.mqtt.announcer.offers({ ...shortTable(answer), unit, no, asked });
   }
 
   private health(): HealthPart[] {
@@ -369,20 +301,4 @@ class RockhourDaemon implements Daemon {
       ),
     ];
   }
-}
-
-function makeRunners(site: SiteConfig, core: Core): ReadonlyMap<string, UnitRunner> {
-  const assembly = {
-    deadline_ms: site.scan_deadline_s * 1000,
-    future_tolerance_ms: (site.clock_tolerance_s ?? CLOCK_TOLERANCE_S) * 1000,
-    longest_gap_scans: LONGEST_GAP_SCANS,
-  };
-  return new Map(site.units.map((unit) => [unit.id, new UnitRunner(unit, core, assembly)]));
-}
-
-/** The built page: beside this file once compiled, else where the build puts it. */
-function pageFolder(): string {
-  const here = fileURLToPath(new URL('.', import.meta.url));
-  const compiled = join(here, 'page');
-  return existsSync(join(compiled, 'index.html')) ? compiled : join(here, '..', 'dist', 'page');
 }
