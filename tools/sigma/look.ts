@@ -22,6 +22,7 @@ import { truthGeometry } from '../score/truthPlant.js';
 import { withTwins } from '../score/twins.js';
 import { seenVariance } from './causes.js';
 import { lnCapacity, trueCalibration } from './trueCalibration.js';
+import { type ReadingError, withoutErrors } from './without.js';
 
 /** One store at one time: errors (estimate less truth) and variances of the state of charge [-]. */
 export interface StoreLook {
@@ -78,7 +79,12 @@ export function looksAt(
   row: RowPlan,
   seed: number,
   hash: string,
-  options: { readonly from_h: number; readonly every_h: number; readonly hours: boolean },
+  options: {
+    readonly from_h: number;
+    readonly every_h: number;
+    readonly hours: boolean;
+    readonly without: ReadonlySet<ReadingError>;
+  },
 ): Look[] {
   const { from_h } = options;
   const recording = truthOf(scenario.truth, seed, hash);
@@ -103,6 +109,7 @@ export function looksAt(
   const series = runSeries(unit, recording, {
     errors: row.errors,
     hours: options.hours,
+    through: withoutErrors(unit, draw, row.errors, recording.header.period_s, options.without),
     from: { scan, snapshot: saveUnit(startUnit(unit)) },
     keep: wanted.map((h) => h.scan + 1),
   });
