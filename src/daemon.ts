@@ -162,6 +162,8 @@ class RockhourDaemon implements Daemon {
       ...common,
       config: site.notify ?? { webhooks: [] },
       site: site.name,
+      mqtt_prefix: site.mqtt.out_prefix,
+      deliver: (topic, payload) => this.mqtt.deliver(topic, payload),
       isTold: (event) => this.alarms.isTold(event),
     });
     this.housekeeping = new Housekeeping({

@@ -126,7 +126,7 @@ export interface DispatchAnswer {
   energy_MWh_el: Quantiles;
   ends_by: EndCause;
   /** Absent = nothing that counts is missing at first, with 90 % probability. */
-  first_minutes?: FirstMinutes;
+  first_minutes?: FirstMinutes | undefined;
 }
 
 export interface Estimate {

@@ -26,6 +26,9 @@ const OWN_COUNTS = [
   'mode_disagreements',
   'history_failures',
   'events',
+  /** Events that the broker has taken as messages of their own, and tries that failed. */
+  'events_told',
+  'events_told_failures',
   /** Commands about alarms, over HTTP and MQTT: followed, refused; those that were no JSON. */
   'alarm_commands',
   'alarm_commands_refused',

@@ -204,7 +204,8 @@ export async function runDemoCheck(
     if (message.kind === 'state') {
       const estimate = daemon.service.now(message.unit)?.estimate;
       if (estimate) one?.score.take(estimate);
-    } else if (message.kind === 'event' && message.event.transition === 'raised') one?.raised.push(message.event.id);
+    } else if (message.kind === 'event' && message.event.transition === 'raised')
+      one?.raised.push(message.event.id);
   });
   const { broker } = await daemon.start();
   const publisher = new ReadingPublisher(broker, site.sources);

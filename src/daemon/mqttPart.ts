@@ -14,6 +14,9 @@ import type { Notices } from './notices.js';
 /** A start waits this long for the broker's first word; one that is away does not hold it up [ms]. */
 const FIRST_WORD_MS = 2000;
 
+/** A message that the broker has not taken within this is sent again [ms]. */
+const DELIVER_MS = 10_000;
+
 export interface MqttPartOptions {
   readonly config: MqttConfig;
   readonly site: string;
@@ -121,6 +124,11 @@ export class MqttPart {
   /** @throws RockhourError PORT_IN_USE */
   async startBroker(): Promise<void> {
     await this.broker?.start();
+  }
+
+  /** Publishes a message that is not retained; resolves once the broker has it, else throws. */
+  deliver(topic: string, payload: string): Promise<void> {
+    return this.link.deliver(topic, payload, DELIVER_MS);
   }
 
   unsubscribe(topic: string): void {

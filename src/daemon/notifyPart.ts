@@ -1,5 +1,6 @@
 import type { History } from '../adapters/history/history.js';
 import type { HealthPart } from '../adapters/http/service.js';
+import { EventTeller } from '../adapters/mqtt/eventTeller.js';
 import { WebhookForwarder } from '../adapters/notify/webhookForwarder.js';
 import type { NotifyConfig, WebhookConfig } from '../config/site.js';
 import type { WatchEvent } from '../core/watch/event.js';
@@ -16,6 +17,9 @@ export interface NotifyPartOptions {
   readonly counters: Counters;
   readonly notices: Notices;
   readonly log: Log;
+  readonly mqtt_prefix: string;
+  /** Publishes over MQTT; resolves once the broker has it. */
+  deliver(topic: string, payload: string): Promise<void>;
   /** False for what nobody is to be told of now, as an alarm that is shelved. */
   isTold(event: WatchEvent): boolean;
 }
@@ -26,9 +30,10 @@ interface Receiver {
   backlog(): number;
 }
 
-/** The receivers of alarms and alerts over HTTP, each with its own cursor and pauses. */
+/** Who is told of alarms and alerts: over MQTT and over HTTP, each with its own cursor and pauses. */
 export class NotifyPart {
   private receivers: readonly Receiver[] = [];
+  private teller: EventTeller | null = null;
 
   constructor(private readonly options: NotifyPartOptions) {}
 
@@ -45,11 +50,23 @@ export class NotifyPart {
   start(): void {
     this.receivers = this.options.config.webhooks.map((config) => this.receiver(config));
     for (const { forwarder } of this.receivers) forwarder.start();
+    this.teller = this.makeTeller();
+    this.teller.start();
   }
 
   async stop(): Promise<void> {
-    await Promise.all(this.receivers.map(({ forwarder }) => forwarder.stop()));
+    const ends = this.receivers.map(({ forwarder }) => forwarder.stop());
+    await Promise.all([...ends, this.teller?.stop()]);
     this.receivers = [];
+    this.teller = null;
+  }
+
+  private makeTeller(): EventTeller {
+    const { history, counters, mqtt_prefix, deliver, isTold } = this.options;
+    const queue = history.eventQueue('mqtt');
+    queue.start();
+    const count = (name: 'events_told' | 'events_told_failures') => counters.add(name);
+    return new EventTeller({ prefix: mqtt_prefix, queue, deliver, isTold, count });
   }
 
   private receiver(config: WebhookConfig): Receiver {

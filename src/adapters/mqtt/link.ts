@@ -135,6 +135,27 @@ export class MqttLink {
     return true;
   }
 
+  /**
+   * Publishes a message that is not retained and waits for the broker's word that it has it.
+   * @throws Error where there is no connection, or none within the time
+   */
+  async deliver(topic: string, payload: string, within_ms: number): Promise<void> {
+    const { client } = this;
+    if (!this.isUp || !client) throw new Error('no connection to the broker');
+    let late: NodeJS.Timeout | undefined;
+    const limit = new Promise<never>((_, reject) => {
+      late = setTimeout(() => reject(new Error(`no answer within ${within_ms} ms`)), within_ms);
+    });
+    const sent = client.publishAsync(topic, payload, { qos: 1, retain: false });
+    try {
+      await Promise.race([sent, limit]);
+    } finally {
+      clearTimeout(late);
+      // What comes after the limit is nobody's.
+      sent.catch(() => undefined);
+    }
+  }
+
   /** Ends a subscription that the broker remembers from before. */
   unsubscribe(topic: string): void {
     // Said again with the next message should it fail.

@@ -164,8 +164,7 @@ function losses(data: ReportData): string {
     const hours = hoursOf(cycle);
     if (cycle.kind !== 'stand' || hours < LEAST_REST_H || run.lost_MWh_th === null)
       return { y: null };
-    // Each end of the rest is known by as much; what both have in common cancels, so this is the most.
-    const sigma = (Math.SQRT2 * 1000 * run.stored_sigma_MWh_th) / hours;
+    const sigma = run.lost_sigma_MWh_th === null ? null : (1000 * run.lost_sigma_MWh_th) / hours;
     return { y: (1000 * run.lost_MWh_th) / hours, sigma };
   });
   return figure(

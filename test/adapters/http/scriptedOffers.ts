@@ -18,6 +18,7 @@ export function scriptedOffers(ask: OffersAsk, now_ms: number, charge_MWh: numbe
         ...{ start_s, begins_s: start_s, ends_s: end, closes_s: end, stops_s },
         pieces: [{ from_s: start_s, to_s: end, power0_W: power_W, power1_W: power_W }],
         held: new Uint8Array(200).fill(1),
+        missing: null,
         bid: ask.prices === undefined ? null : 0.75,
       };
       return {
