@@ -27,8 +27,7 @@ export function withoutErrors(
   errors: ErrorModel,
   period_s: number,
   out: ReadonlySet<ReadingError>,
-): RunOptions['through'] {
-  if (out.size === 0) return undefined;
+): NonNullable<RunOptions['through']> {
   const groupOf = new Map(
     unit.stores.flatMap((s) =>
       s.strings.flatMap((t) => t.thermocouples.map((c) => [c.id, c.group] as const)),
