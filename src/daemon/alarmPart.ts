@@ -61,7 +61,10 @@ export class AlarmPart {
   /** Once what happened while it was away has been taken in. */
   start(): void {
     const { history, clock } = this.options;
-    history.write(() => history.alarms.start(Math.floor(clock.now())));
+    history.write(() => {
+      history.alarms.start(Math.floor(clock.now()));
+      this.returnOfGoneUnits();
+    });
     const period_ms = Math.max(20, TICK_MS / Math.max(1, clock.speed));
     this.ticking ??= setInterval(() => this.passTime(), period_ms);
     for (const { id } of this.options.units) this.say(id, null);
@@ -136,6 +139,17 @@ export class AlarmPart {
       annunciations: alarms.annunciations(unit, 'alarm', from_ms - WINDOW_MS, to_ms),
       alerts: alarms.annunciations(unit, 'alert', from_ms, to_ms).length,
     });
+  }
+
+  /** What stands of a unit that is configured no more would stand for ever. */
+  private returnOfGoneUnits(): void {
+    const { history, units, clock } = this.options;
+    const time = new Date(clock.now()).toISOString();
+    for (const event of history.alarms.active()) {
+      if (units.some(({ id }) => id === event.unit)) continue;
+      const message = `Unit ${event.unit} is not in the configuration any more.`;
+      history.events.add({ ...event, transition: 'returned', time, message });
+    }
   }
 
   private refuse(fault: CommandFault): AlarmAnswer {

@@ -77,7 +77,9 @@ export class MqttPart {
       topics: [...intake.topics, ...this.commands.topics],
       will: Announcer.will(config.out_prefix),
       receive: (delivery) => {
-        if (!this.commands.receive(delivery)) intake.receive(delivery);
+        const { acknowledge } = delivery;
+        const inTurn = acknowledge && (() => intake.acknowledgeInTurn(acknowledge));
+        if (!this.commands.receive({ ...delivery, acknowledge: inTurn })) intake.receive(delivery);
       },
       up: () => this.up(),
       down: (reason) => {

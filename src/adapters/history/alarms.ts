@@ -112,17 +112,23 @@ export class Alarms {
    */
   command(command: AlarmCommand, now_ms: number): string | null {
     const id = readId(command.id);
-    const row = this.row(command.id) ?? (id && blank(command.id, id.unit, id.kind));
+    let row = this.row(command.id) ?? (id && blank(command.id, id.unit, id.kind));
     if (!row) return 'there is no such alarm or alert';
+    // One that was never raised is out of service all the same.
+    if (this.isNamed(command.id) && (JSON.parse(row.alarm) as AlarmState).service === null)
+      row = this.step(row, byConfiguration(true), now_ms);
     const alarm = JSON.parse(row.alarm) as AlarmState;
     if (command.action === 'acknowledge' && alarm.acknowledged !== null && !isHeldBack(alarm.state))
       return null;
+    if (command.action === 'return_to_service' && this.isNamed(command.id))
+      return `it is ${NAMED} of the configuration: take it out there`;
     const timing = { time_ms: now_ms, latching: this.isLatching(row.kind) };
     const step = stepAlarm(alarm, inputOf(command, now_ms), timing);
     if (step.refused !== null) return step.refused;
     this.database.pragma('synchronous = FULL');
     try {
-      this.database.transaction(() => this.store(row, step.state, step.transition))();
+      const moved = row;
+      this.database.transaction(() => this.store(moved, step.state, step.transition))();
     } finally {
       this.database.pragma('synchronous = NORMAL');
     }

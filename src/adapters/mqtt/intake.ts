@@ -126,6 +126,21 @@ export class Intake {
       notice('unknown_topic', `nothing is configured for topic ${delivery.topic}`);
       this.options.unwanted(delivery.topic);
     }
+    this.flushSoon();
+  }
+
+  /**
+   * Acknowledges a message that was for somebody else, in its turn: the broker is to get
+   * acknowledgements in the order of arrival.
+   */
+  acknowledgeInTurn(acknowledge: () => void): void {
+    if (this.stopped) return;
+    this.unflushed++;
+    this.unacknowledged.push(acknowledge);
+    this.flushSoon();
+  }
+
+  private flushSoon(): void {
     if (this.failing) return;
     if (this.unflushed >= GROUP_MESSAGES) this.flush();
     else this.timer ??= setTimeout(() => this.flush(), GROUP_MS);

@@ -92,7 +92,7 @@ export const figuresSchema = z.object({
     .describe('The same alarm three times or more in a minute'),
   stale: z
     .array(z.object({ id: z.string(), hours: z.number() }))
-    .describe('Alarms that stand longer than 24 h'),
+    .describe('Alarms that stand now, and stood for more than 24 h at the end of the span'),
   most_frequent: z
     .array(z.object({ id: z.string(), count: z.number(), share: z.number() }))
     .describe('The ten most frequent'),
