@@ -3,13 +3,13 @@
  * healthy lead (a day with part loads, a charge, 36 h of rest), one plant, machine, meter and set of
  * sensors per seed; and healthy days of cycling at changing power and weather.
  *
- *   npm run score:watch -- [--seeds 20] [--tuning] [--only strongest,weeks] [--workers 2] [--strict]
- *     [--truths-only]
+ *   npm run score:watch -- [--seeds 20] [--from SEED] [--tuning] [--only strongest,weeks] [--strict]
+ *     [--workers 2] [--truths-only]
  *   npx tsx tools/watchScore.ts --trace SEED BRANCH [--kinds heat_transfer,string_flow] [--every 1]
  *     [--before]
  *
  * Seeds are from 30000 on, kept for judging and never looked at while building; --tuning takes 1, 2,
- * ... instead. Healthy weeks take plants of their own, 500 seeds on. Truths and results are kept in
+ * ... instead, --from others. Healthy weeks take plants of their own, 500 seeds on. Truths and results are kept in
  * .score/watch: a run that was stopped goes on where it was, and a run after a change of the
  * estimator needs no new truths. --only takes `weeks`, `branches`, `strongest` (grades, and no fault)
  * or single branches. --strict ends with code 1 where a goal is missed.
@@ -42,6 +42,7 @@ const { values, positionals } = parseArgs({
   allowPositionals: true,
   options: {
     seeds: { type: 'string', default: String(WATCH_SEEDS) },
+    from: { type: 'string' },
     tuning: { type: 'boolean', default: false },
     only: { type: 'string' },
     workers: { type: 'string', default: '2' },
@@ -87,7 +88,7 @@ if (unknown.length > 0) {
   refuse(`--only must be of ${PART_WORDS.join(', ')}; got ${unknown.join(', ')}`);
 }
 const { text, blocks, failures } = await scoreWatch({
-  from: values.tuning ? 1 : WATCH_FROM,
+  from: above('from', values.from ?? String(values.tuning ? 1 : WATCH_FROM)),
   seeds: above('seeds', values.seeds),
   parts: words.length > 0 ? partsOf(words) : ALL_PARTS,
   workers: above('workers', values.workers),
