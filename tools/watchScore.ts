@@ -9,8 +9,8 @@
  *     [--before]
  *
  * Seeds are from 30000 on, kept for judging and never looked at while building; --tuning takes 1, 2,
- * ... instead, --from others. Healthy weeks take plants of their own, 500 seeds on. Truths and results are kept in
- * .score/watch: a run that was stopped goes on where it was, and a run after a change of the
+ * ... instead, --from others. Healthy weeks take plants of their own, 500 seeds on. Truths and results
+ * are kept in .score/watch: a run that was stopped goes on where it was, and a run after a change of the
  * estimator needs no new truths. --only takes `weeks`, `branches`, `strongest` (grades, and no fault)
  * or single branches. --strict ends with code 1 where a goal is missed.
  *
