@@ -110,7 +110,9 @@ describe('README.md names everything that a user meets', () => {
   it('each kind of event with its class and priority', () => {
     for (const kind of EVENT_KINDS) {
       const { class: which, priority } = KIND_CLASSES[kind];
-      expect(rows(readme, kind)[0]).toContain(`| ${which} | ${priority} |`);
+      // An indicator may have the name of its event.
+      const told = rows(readme, kind).filter((row) => row.includes(`| ${which} | ${priority} |`));
+      expect(told, kind).toHaveLength(1);
     }
   });
 
