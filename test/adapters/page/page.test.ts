@@ -284,6 +284,23 @@ describe.skipIf(!chromium)('the page, in a real browser', { timeout: 30_000 }, (
     expect(await page.locator('#who').inputValue()).toBe('night shift');
   });
 
+  it('tells what is held back, by whom and why, apart from what stands', async () => {
+    const { page } = await open();
+    const { id } = plant.raise({ kind: 'valve_leaks', subject: 'cold' });
+    await page.waitForSelector(`.events li[data-id="${id}"]`);
+    const shelve = { id, action: 'shelve', who: 'day shift', hours: 2, why: 'seat being lapped' };
+    expect(plant.commandAlarm(shelve).accepted).toBe(true);
+    await page.waitForSelector('.held-back li', { state: 'attached' });
+    expect(await page.locator(`.events li[data-id="${id}"]`).count()).toBe(0);
+    expect(await page.locator('.held-back summary').textContent()).toBe('1 held back');
+    expect(await page.locator('.held-back li').textContent()).toMatch(
+      /^valve leaks · North unit · cold: shelved by day shift until .*: seat being lapped$/,
+    );
+    plant.commandAlarm({ id, action: 'unshelve', who: 'day shift' });
+    await page.waitForSelector(`.events li[data-id="${id}"]`);
+    expect(await page.locator('.held-back').count()).toBe(0);
+  });
+
   it('works out the hours at a power that the user types, again when the estimate moves on', async () => {
     const { page } = await open();
     await page.waitForSelector('#hours li');

@@ -121,12 +121,11 @@ export function alarmsPanel(model: PageModel, api: Api, reload: () => Promise<vo
   const list = h('ul', { class: 'events', tabindex: 0, 'aria-label': 'Standing' });
   const heldSummary = h('summary', {});
   const heldList = h('ul', {});
-  const held = h('details', { class: 'held-back', hidden: true }, heldSummary, heldList);
+  const held = h('details', { class: 'held-back' }, heldSummary, heldList);
   const head = byId('open-count');
   byId('alarms').append(
     summary,
     list,
-    held,
     fault,
     h('p', { class: 'who' }, h('label', { for: 'who' }, 'Acknowledge as '), who),
   );
@@ -165,7 +164,8 @@ export function alarmsPanel(model: PageModel, api: Api, reload: () => Promise<vo
     );
     heldList.replaceChildren(...model.heldBack.map((one) => heldLine(one, nameOf(one.unit))));
     setText(heldSummary, `${model.heldBack.length} held back`);
-    setAttributes(held, { hidden: model.heldBack.length === 0 });
+    if (model.heldBack.length === 0) held.remove();
+    else if (!held.isConnected) list.after(held);
     // The list was made anew: a keyboard user stays where he was.
     const same = [...list.children].find((one) => (one as HTMLElement).dataset.id === focused);
     same?.querySelector('button')?.focus();
