@@ -8,7 +8,8 @@ export interface FinerWall {
   readonly from: readonly number[];
 }
 
-/** Inwards of the string pieces are at most so many thicknesses of the last layer. */
+/** Pieces are about so many thicknesses of the last layer, and inwards of the string. */
+const OUTWARDS = 1.5;
 const INWARDS = 3;
 
 interface Piece {
@@ -18,7 +19,7 @@ interface Piece {
 }
 
 /**
- * The wall zone, and the tube beside it, cut to about the thickness of the zone's last layer. While the
+ * The wall zone, and the tube beside it, cut to about one and a half times the thickness of the zone's last layer. While the
  * tracker only needs what they hold together, how fast heat comes to the string hangs on their
  * thickness: coarse layers pass it on early, and a coarse tube thins it out. The tube is what is left
  * of it at the string itself, two pieces thick.
@@ -64,7 +65,7 @@ export function finerWall(bed: BedDefinition, string_m: number, coarse: WallMode
     }
   };
   walk(inwards.flatMap((piece) => cut(piece, INWARDS * thickness).reverse()));
-  walk(outwards.flatMap((piece) => cut(piece, thickness)));
+  walk(outwards.flatMap((piece) => cut(piece, OUTWARDS * thickness)));
   return { wall: { ...coarse, layers }, from };
 }
 

@@ -6,12 +6,14 @@ import { type BaselineState, baseline, learnBaseline, startBaseline } from '../b
 import type {
   Indicator,
   IndicatorInput,
+  IndicatorReason,
   IndicatorRule,
   IndicatorsDefinition,
+  IndicatorView,
 } from '../indicator.js';
 import { decisionAt, stepSequential } from '../sequential.js';
 import { channelOf } from './pressureDrop.js';
-import { type Followed, shownAs, startFollowed, withSigma } from './shown.js';
+import { type Followed, remembered, shownAs, stampOf, startFollowed, withSigma } from './shown.js';
 
 /** An hour in one mode makes one value, after the pressures have settled [s]. */
 const HOUR_S = 3600;
@@ -68,31 +70,39 @@ export const GAS_INVENTORY: Indicator<GasInventoryState> = {
     followed: startFollowed(),
   }),
   step(state, rule, watching, input) {
-    const channels = pressures(input.model);
+    const channels = pressuresOf(input.model);
     if (channels.length > 0) follow(state, channels, rule, watching, input);
-    const { unit } = input.model;
-    const law = lawOf(state);
-    const learned = MODES.some((mode) => state.laws[law][mode].healthy.kept);
-    const blind = channels.length === 0;
+    const stamp = `${stampOf(state.followed)} ${rule.limit}`;
     return [
-      shownAs({
-        kind: 'gas_inventory',
-        subject: unit.id,
-        unit: '-',
-        rule,
-        followed: state.followed,
-        healthy: blind ? null : 0,
-        healthy_from: learned ? 'learned' : 'configured',
-        reason: blind
-          ? 'not_instrumented'
-          : state.followed.test.count > 0 && !learned
-            ? 'learning'
-            : null,
-        sentence: sentence(unit.id, state.followed, law, channels.length, rule),
-      }),
+      remembered(state, stamp, () => view(state, input.model.unit.id, channels.length, rule)),
     ];
   },
 };
+
+function view(
+  state: GasInventoryState,
+  unit: string,
+  channels: number,
+  rule: IndicatorRule,
+): IndicatorView {
+  const { followed } = state;
+  const law = lawOf(state);
+  const learned = MODES.some((mode) => state.laws[law][mode].healthy.kept);
+  let reason: IndicatorReason | null = null;
+  if (channels === 0) reason = 'not_instrumented';
+  else if (followed.test.count > 0 && !learned) reason = 'learning';
+  return shownAs({
+    kind: 'gas_inventory',
+    subject: unit,
+    unit: '-',
+    rule,
+    followed,
+    healthy: channels === 0 ? null : 0,
+    healthy_from: learned ? 'learned' : 'configured',
+    reason,
+    sentence: sentence(unit, followed, law, channels, rule),
+  });
+}
 
 const byMode = (): Record<Mode, Learned> => ({
   charge: startLearned(),
@@ -107,6 +117,14 @@ function startLearned(): Learned {
 interface Pressure {
   readonly channel: number;
   readonly store: number;
+}
+
+const known = new WeakMap<UnitModel, Pressure[]>();
+
+function pressuresOf(model: UnitModel): Pressure[] {
+  const found = known.get(model) ?? pressures(model);
+  known.set(model, found);
+  return found;
 }
 
 function pressures(model: UnitModel): Pressure[] {
@@ -191,20 +209,20 @@ function take(
   const { followed } = state;
   followed.decision = decisionAt(in_control_d, HOUR_S);
   // Without anything learned only the configured pressures are there to hold against.
-  const known = learned ?? { value: 0, sigma: PRIOR_SIGMA };
-  const value = (learned === null ? lnPressure : values[law]) - known.value;
+  const healthyOne = learned ?? { value: 0, sigma: PRIOR_SIGMA };
+  const value = (learned === null ? lnPressure : values[law]) - healthyOne.value;
   const own =
     learned === null
       ? 0
       : Math.sqrt(Math.max(0, squares - (sum * sum) / healthy.count) / healthy.count);
   const sigma = Math.max(VALUE_SIGMA, own);
   const lost = 1 - Math.exp(value);
-  const safe = 2 * known.sigma;
+  const safe = 2 * healthyOne.sigma;
   const tested = { value: lost, sigma, healthy: safe, degraded: safe + rule.limit };
   stepSequential(followed.test, tested, followed.decision);
   Object.assign(followed, {
     value: lost,
-    sigma: Math.hypot(sigma, known.sigma),
+    sigma: Math.hypot(sigma, healthyOne.sigma),
     time_ms: input.time_ms,
   });
   if (followed.test.degraded || followed.test.up > 0.25 * followed.decision) return;

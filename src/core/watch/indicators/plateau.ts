@@ -11,7 +11,7 @@ import type {
   IndicatorView,
 } from '../indicator.js';
 import { decisionAt, stepSequential } from '../sequential.js';
-import { type Followed, shownAs, startFollowed, withSigma } from './shown.js';
+import { type Followed, remembered, shownAs, stampOf, startFollowed, withSigma } from './shown.js';
 
 /** Steel of pipes and plenum is warmed through after so long of a run [s]. */
 const SETTLE_S = 2700;
@@ -67,9 +67,12 @@ export const PLATEAU: Indicator<PlateauState> = {
   }),
   step(state, rule, watching, input) {
     if (runs(state, input)) look(state, rule, watching, input);
-    return input.model.stores.map((store, s) =>
-      view(state.stores[s] as StorePlateaus, store, input, rule),
-    );
+    return input.model.stores.map((store, s) => {
+      const plateaus = state.stores[s] as StorePlateaus;
+      const { charge, discharge } = plateaus;
+      const stamp = `${stampOf(charge.above)} ${stampOf(discharge.above)} ${rule.limit}`;
+      return remembered(plateaus, stamp, () => view(plateaus, store, input, rule));
+    });
   },
 };
 

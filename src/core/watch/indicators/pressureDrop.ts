@@ -11,7 +11,7 @@ import type {
   IndicatorView,
 } from '../indicator.js';
 import { decisionAt, stepSequential } from '../sequential.js';
-import { type Followed, shownAs, startFollowed, withSigma } from './shown.js';
+import { type Followed, remembered, shownAs, stampOf, startFollowed, withSigma } from './shown.js';
 
 /** Readings are averaged over this time of even flow, and so many of these make one value [s]. */
 const BLOCK_S = 600;
@@ -62,6 +62,8 @@ interface Drop {
   /** While rock is below freezing, and while none is. */
   cold: Mean;
   warm: Mean;
+  /** Whether the excess was there only below freezing, as of the newest value. */
+  only: boolean | null;
 }
 
 export interface PressureDropState {
@@ -81,7 +83,8 @@ export const PRESSURE_DROP: Indicator<PressureDropState> = {
       const drop = state.stores[s] as Drop;
       const channel = channelOf(input.model, 'pressure_drop', store.store.id);
       if (channel >= 0) follow(drop, store, s, channel, rule, watching, input);
-      return view(drop, store, channel, rule);
+      const stamp = `${stampOf(drop.followed)} ${rule.limit}`;
+      return remembered(drop, stamp, () => view(drop, store, channel, rule));
     });
   },
 };
@@ -95,6 +98,7 @@ function startDrop(): Drop {
     ratios: 0,
     cold: noMean(),
     warm: noMean(),
+    only: null,
   };
 }
 
@@ -207,6 +211,7 @@ function take(
   followed.value = value;
   followed.sigma = Math.hypot(VALUE_SIGMA, spread) * value;
   followed.time_ms = time_ms;
+  drop.only = followed.test.degraded ? onlyWhileCold(drop, known.value, rule) : null;
   if (followed.test.degraded || followed.test.up > 0.25 * followed.decision) return;
   const own = { value: ratio, sigma: VALUE_SIGMA * ratio };
   learnBaseline(drop.healthy, own, time_ms, baseline_from_ms, RULE);
@@ -220,7 +225,7 @@ function view(
 ): IndicatorView {
   const { followed } = drop;
   const known = healthyOf(drop);
-  const only = followed.test.degraded ? onlyWhileCold(drop, known.value, rule) : null;
+  const { only } = drop;
   const shown = shownAs({
     kind: 'pressure_drop',
     subject: store.id,

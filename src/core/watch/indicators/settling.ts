@@ -1,3 +1,5 @@
+import { createBedWork, stepBed } from '../../bed/kernel.js';
+import { temperatureAt } from '../../bed/tables.js';
 import type { StoreEnd } from '../../definitions.js';
 import type { StoreModel, StoreState } from '../../track/storeTracker.js';
 import type {
@@ -8,10 +10,9 @@ import type {
   IndicatorsDefinition,
   IndicatorView,
 } from '../indicator.js';
-import { decisionAt, stepSequential } from '../sequential.js';
+import { decisionAt, type SequentialValue, stepSequential } from '../sequential.js';
 import { type Entry, followEntry, startEntry, UNCOVERED } from './settlingEntry.js';
-import { type Followed, shownAs, startFollowed } from './shown.js';
-import { copyBeds, rockAt, type StandingBeds, standOn } from './standingModel.js';
+import { type Followed, remembered, shownAs, stampOf, startFollowed } from './shown.js';
 
 /** So many of the topmost thermocouples of each string are tested. */
 const TESTED = 2;
@@ -28,12 +29,16 @@ const CHANGE_K = 0.8;
 /** Share of the gas's movement that a covered junction just below the surface may show. */
 const COVERED = 0.2;
 const SHARE_SIGMA = 0.15;
+/** Where the bed has sunk as a whole, a thermocouple that last showed more of the gas than this hangs in it. */
+const HANGS = 0.6;
 /** A topmost thermocouple deeper than this tells of the bed's level late, if at all [m]. */
 const DEEP_M = 0.3;
 
 interface Top {
   readonly tube: number;
   readonly sensor: number;
+  /** The topmost of its string. */
+  readonly first: boolean;
   readonly followed: Followed;
   sum_K: number;
   /** Reading, gas and rock that changes are counted from [K]; null = none. */
@@ -45,8 +50,11 @@ interface Level {
   mean_s: number;
   scans: number;
   gas_K: number;
-  beds: StandingBeds | null;
+  /** Tubes as they were when the rest began, marched on by themselves [J/m3]. */
+  beds: Float64Array[] | null;
   readonly tops: Top[];
+  /** Test of all topmost thermocouples together: a bed mostly sinks as a whole. */
+  readonly whole: Followed;
   readonly entry: Entry;
 }
 
@@ -73,7 +81,11 @@ export const SETTLING: Indicator<SettlingState> = {
       const level = state.stores[s] as Level;
       const gas = gasAbove(store, input);
       if (gas >= 0) follow(level, store, s, gas, watching, input);
-      return view(level, store, input.state.stores[s] as StoreState, gas, rule);
+      const own = input.state.stores[s] as StoreState;
+      const bare = own.sensors.flat().filter(({ verdict }) => verdict === 'uncovered').length;
+      const tests = level.tops.map(({ followed }) => followed.test.count).join();
+      const stamp = `${stampOf(level.whole)} ${tests} ${bare} ${rule.limit}`;
+      return remembered(level, stamp, () => view(level, store, own, gas, rule));
     });
   },
 };
@@ -102,19 +114,20 @@ function startLevel(model: StoreModel): Level {
     fromTop(model, tube)
       .slice(0, TESTED)
       .map(
-        ({ sensor }): Top => ({
+        ({ sensor }, i): Top => ({
           tube,
           sensor,
+          first: i === 0,
           followed: startFollowed(),
           sum_K: 0,
           from: null,
         }),
       ),
   );
-  return { ...noRest(), tops, entry: startEntry(tops) };
+  return { ...noRest(), tops, whole: startFollowed(), entry: startEntry(tops) };
 }
 
-const noRest = (): Omit<Level, 'tops' | 'entry'> => ({
+const noRest = (): Omit<Level, 'tops' | 'whole' | 'entry'> => ({
   stood_s: 0,
   mean_s: 0,
   scans: 0,
@@ -142,7 +155,7 @@ function follow(
   }
   level.stood_s += dt_s;
   if (level.stood_s < SETTLE_S) return;
-  level.beds ??= copyBeds(model, store);
+  level.beds ??= store.tubes.map(({ enthalpy }) => enthalpy.slice());
   level.mean_s += dt_s;
   if (Number.isFinite(read)) {
     level.scans++;
@@ -151,7 +164,7 @@ function follow(
       top.sum_K += scan.values[model.channels[top.tube]?.[top.sensor] as number] as number;
   }
   if (level.mean_s < MEAN_S) return;
-  standOn(model, 'as_configured', level.beds, conditions.ambient_K, level.mean_s);
+  standTubes(level.beds, model, conditions.ambient_K, level.mean_s);
   if (level.scans > 0) compare(level, model, watching, time_ms);
   level.mean_s = 0;
   level.scans = 0;
@@ -181,12 +194,9 @@ function enter(
   });
   leaps.forEach((leap, i) => {
     if (leap === null) return;
-    const { followed } = level.tops[i] as Top;
     const { value, sigma, covered } = leap;
-    followed.decision = decisionAt(in_control_d, 6 * MEAN_S);
     const tested = { value, sigma, healthy: covered, degraded: UNCOVERED };
-    stepSequential(followed.test, tested, followed.decision);
-    Object.assign(followed, { value, sigma, time_ms });
+    take(level, level.tops[i] as Top, tested, in_control_d, time_ms);
   });
 }
 
@@ -205,15 +215,14 @@ function compare(
   time_ms: number,
 ): void {
   const gas_K = level.gas_K / level.scans;
-  const rock = rockAt(model, level.beds as StandingBeds).temperature_K;
   for (const top of level.tops) {
     const now = {
       read_K: top.sum_K / level.scans,
       gas_K,
-      rock_K: rock[indexOf(model, top.tube, top.sensor)] as number,
+      rock_K: rockAt(level.beds as Float64Array[], model, top),
     };
     if (!Number.isFinite(now.read_K)) continue;
-    const { from, followed } = top;
+    const { from } = top;
     top.from ??= now;
     if (from === null) continue;
     const rocks = now.rock_K - from.rock_K;
@@ -222,16 +231,50 @@ function compare(
     top.from = now;
     const value = (now.read_K - from.read_K - rocks) / apart;
     const sigma = Math.hypot(CHANGE_K / apart, SHARE_SIGMA);
-    followed.decision = decisionAt(in_control_d, 6 * MEAN_S);
     const tested = { value, sigma, healthy: COVERED, degraded: 1 };
-    stepSequential(followed.test, tested, followed.decision);
-    Object.assign(followed, { value, sigma, time_ms });
+    take(level, top, tested, in_control_d, time_ms);
   }
 }
 
-/** Place of a sensor among all of its store, by tube and sensor. */
-function indexOf(model: StoreModel, tube: number, sensor: number): number {
-  return model.channels.slice(0, tube).reduce((sum, row) => sum + row.length, 0) + sensor;
+/** Hands a value to the test of its thermocouple and, of a topmost one, to that of the whole bed. */
+function take(
+  { whole }: Level,
+  { first, followed }: Top,
+  tested: SequentialValue,
+  in_control_d: number,
+  time_ms: number,
+): void {
+  const { value, sigma } = tested;
+  for (const one of first ? [followed, whole] : [followed]) {
+    one.decision = decisionAt(in_control_d, 6 * MEAN_S);
+    stepSequential(one.test, tested, one.decision);
+    Object.assign(one, { value, sigma, time_ms });
+  }
+}
+
+/** Tubes that stand, each by itself, over `dt_s`. */
+function standTubes(
+  beds: readonly Float64Array[],
+  { tubes, tables }: StoreModel,
+  ambient_K: number,
+  dt_s: number,
+): void {
+  tubes.forEach(({ wallLoss_W_m3K }, k) => {
+    const bed = beds[k] as Float64Array;
+    const step = {
+      ...{ massFlux_kg_m2s: 0, inlet_K: ambient_K, ambient_K, dt_s },
+      ...{ heatTransferFactor: 1, wallLoss_W_m3K },
+    };
+    stepBed(tables, bed, step, createBedWork(bed.length));
+  });
+}
+
+/** Rock at a thermocouple [K]. */
+function rockAt(beds: readonly Float64Array[], model: StoreModel, { tube, sensor }: Top): number {
+  const { layout, string } = model.tubes[tube] as StoreModel['tubes'][number];
+  const share = (string.thermocouples[sensor]?.position_m ?? 0) / model.store.bed.length_m;
+  const cell = Math.min(layout.cells - 1, Math.max(0, Math.floor(share * layout.cells)));
+  return temperatureAt(model.tables, (beds[tube] as Float64Array)[cell] as number);
 }
 
 interface Found {
@@ -250,9 +293,12 @@ function found(level: Level, model: StoreModel, state: StoreState): Found {
   let most = model.store.bed.length_m;
   let topmost = model.store.bed.length_m;
   const ids: string[] = [];
-  let followed = (level.tops[0] as Top).followed;
+  const { whole } = level;
+  let followed = whole;
   const further = (a: Followed, b: Followed) =>
     Number(a.test.degraded) - Number(b.test.degraded) || a.test.up - b.test.up;
+  const hangs = ({ first, followed: own }: Top): boolean =>
+    own.test.degraded || (first && whole.test.degraded && (own.value ?? 0) > HANGS);
   model.tubes.forEach(({ string }, k) => {
     const places = fromTop(model, k);
     let deepest = -1;
@@ -261,7 +307,7 @@ function found(level: Level, model: StoreModel, state: StoreState): Found {
       const top = level.tops.find((t) => t.tube === k && t.sensor === sensor);
       const judged = state.sensors[k]?.[sensor]?.verdict === 'uncovered';
       if (top !== undefined && further(top.followed, followed) > 0) followed = top.followed;
-      if (!judged && top?.followed.test.degraded !== true) return;
+      if (!judged && (top === undefined || !hangs(top))) return;
       deepest = i;
       ids.push(string.thermocouples[sensor]?.id ?? '');
     });

@@ -61,6 +61,26 @@ export function shownAs(shown: Shown): IndicatorView {
   };
 }
 
+const made = new WeakMap<object, { readonly stamp: string; readonly view: IndicatorView }>();
+
+/**
+ * The view that was made of a state last, or, where its stamp has changed, a new one: sentences are
+ * dear, and values come once in an hour.
+ *
+ * @param owner state of the subject
+ * @param stamp of all that the view follows from
+ */
+export function remembered(owner: object, stamp: string, make: () => IndicatorView): IndicatorView {
+  const known = made.get(owner);
+  if (known?.stamp === stamp) return known.view;
+  const view = make();
+  made.set(owner, { stamp, view });
+  return view;
+}
+
+/** What has gone into a test, in a stamp. */
+export const stampOf = ({ test, time_ms }: Followed): string => `${test.count}/${time_ms}`;
+
 function finite(value: number | null): number | null {
   return value !== null && Number.isFinite(value) ? value : null;
 }

@@ -9,7 +9,7 @@ import type {
   IndicatorView,
 } from '../indicator.js';
 import { decisionAt, newInformation, stepSequential } from '../sequential.js';
-import { type Followed, shownAs, startFollowed, withSigma } from './shown.js';
+import { type Followed, remembered, shownAs, stampOf, startFollowed, withSigma } from './shown.js';
 import { fitRest } from './standingFit.js';
 import { MEAN_S, type Rest, startRest, stepRest } from './standingRest.js';
 
@@ -74,7 +74,9 @@ export const STANDING_LOSS: Indicator<StandingLossState> = {
       const standing = state.stores[s] as Standing;
       const away_m = fromWall(store);
       if (away_m <= REACH_M) follow(standing, store, s, rule, watching, input);
-      return view(standing, store, away_m, rule);
+      const { followed, healthy } = standing;
+      const stamp = `${stampOf(followed)} ${healthy.count} ${healthy.begun_ms} ${rule.limit}`;
+      return remembered(standing, stamp, () => view(standing, store, away_m, rule));
     });
   },
 };

@@ -67,7 +67,21 @@ function variantsOf(model: StoreModel): Readonly<Record<Variant, VariedStore>> {
   return made;
 }
 
-/** A copy of the beds as they are estimated now. */
+/** Cells that are enough along a bed that stands: what is asked lies beside wall and ends, not in the front. */
+const ENOUGH = 40;
+
+/** Means of as many cells together as divide the bed evenly and leave enough. */
+function merged(cells: Float64Array): Float64Array {
+  let each = Math.max(1, Math.floor(cells.length / ENOUGH));
+  while (cells.length % each !== 0) each--;
+  return Float64Array.from({ length: cells.length / each }, (_, i) => {
+    let sum = 0;
+    for (let j = i * each; j < (i + 1) * each; j++) sum += cells[j] as number;
+    return sum / each;
+  });
+}
+
+/** A copy of the beds as they are estimated now, on cells that are enough. */
 export function copyBeds(model: StoreModel, state: StoreState): StandingBeds {
   const streams = streamsOf(model, state);
   const steel = streams.at(-1)?.wall?.steel_K;
@@ -76,8 +90,8 @@ export function copyBeds(model: StoreModel, state: StoreState): StandingBeds {
   const beside = model.wall?.tube ?? 0;
   const order = [...model.tubes.keys(), ...pieces.map((l) => (l < 0 ? beside : tubes + l))];
   return {
-    streams: order.map((i) => (streams[i] as Stream).enthalpy.slice()),
-    steel_K: steel === undefined ? null : steel.slice(),
+    streams: order.map((i) => merged((streams[i] as Stream).enthalpy)),
+    steel_K: steel === undefined ? null : merged(steel),
   };
 }
 
@@ -130,12 +144,12 @@ export function rockAt(
 ): { temperature_K: number[]; slope_K_m: number[] } {
   const temperature_K: number[] = [];
   const slope_K_m: number[] = [];
-  model.tubes.forEach(({ string, layout }, k) => {
+  model.tubes.forEach(({ string }, k) => {
     const bed = beds.streams[k] as Float64Array;
-    const dx = model.store.bed.length_m / layout.cells;
+    const dx = model.store.bed.length_m / bed.length;
     for (const { position_m } of string.thermocouples) {
       const place = position_m / dx - 0.5;
-      const cell = Math.min(layout.cells - 2, Math.max(0, Math.floor(place)));
+      const cell = Math.min(bed.length - 2, Math.max(0, Math.floor(place)));
       const share = Math.min(1, Math.max(0, place - cell));
       const a = temperatureAt(model.tables, bed[cell] as number);
       const b = temperatureAt(model.tables, bed[cell + 1] as number);

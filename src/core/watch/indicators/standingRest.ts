@@ -11,7 +11,7 @@ import {
 } from './standingModel.js';
 
 /** The standing models are marched this often; readings are averaged over so long [s]. */
-const STEP_S = 600;
+const STEP_S = 1800;
 export const MEAN_S = 3600;
 
 type Rock = ReturnType<typeof rockAt>;

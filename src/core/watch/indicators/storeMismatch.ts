@@ -1,8 +1,8 @@
 import type { Mode } from '../../definitions.js';
 import { type BaselineState, baseline, learnBaseline, startBaseline } from '../baseline.js';
-import type { Indicator, IndicatorReason } from '../indicator.js';
+import type { Indicator, IndicatorReason, IndicatorRule, IndicatorView } from '../indicator.js';
 import { decisionAt, stepSequential } from '../sequential.js';
-import { type Followed, shownAs, startFollowed, withSigma } from './shown.js';
+import { type Followed, remembered, shownAs, stampOf, startFollowed, withSigma } from './shown.js';
 
 /** A run shorter than this ends no phase of a cycle [s]. */
 const LEAST_RUN_S = 1800;
@@ -64,24 +64,8 @@ export const STORE_MISMATCH: Indicator<StoreMismatchState> = {
       state.difference = (a?.soc ?? Number.NaN) - (b?.soc ?? Number.NaN);
       state.sigma = Math.hypot(a?.soc_sigma ?? Number.NaN, b?.soc_sigma ?? Number.NaN);
     }
-    const followed = worse(state);
-    const kept = state.healthy.charge.kept || state.healthy.discharge.kept;
-    let reason: IndicatorReason | null = null;
-    if (alone) reason = 'not_instrumented';
-    else if (followed.test.count > 0 && !kept) reason = 'learning';
-    return [
-      shownAs({
-        kind: 'store_mismatch',
-        subject: unit.id,
-        unit: '-',
-        rule,
-        followed,
-        healthy: alone ? null : 0,
-        healthy_from: kept ? 'learned' : 'configured',
-        reason,
-        sentence: sentence(unit.id, followed, followed === state.hot, alone, rule.limit),
-      }),
-    ];
+    const stamp = `${stampOf(state.hot)} ${rule.limit}`;
+    return [remembered(state, stamp, () => view(state, unit.id, alone, rule))];
 
     function take(now: StoreMismatchState, run: 'charge' | 'discharge', factor: number): void {
       const learned = baseline(now.healthy[run], RULE);
@@ -111,6 +95,30 @@ export const STORE_MISMATCH: Indicator<StoreMismatchState> = {
     }
   },
 };
+
+function view(
+  state: StoreMismatchState,
+  unit: string,
+  alone: boolean,
+  rule: IndicatorRule,
+): IndicatorView {
+  const followed = worse(state);
+  const kept = state.healthy.charge.kept || state.healthy.discharge.kept;
+  let reason: IndicatorReason | null = null;
+  if (alone) reason = 'not_instrumented';
+  else if (followed.test.count > 0 && !kept) reason = 'learning';
+  return shownAs({
+    kind: 'store_mismatch',
+    subject: unit,
+    unit: '-',
+    rule,
+    followed,
+    healthy: alone ? null : 0,
+    healthy_from: kept ? 'learned' : 'configured',
+    reason,
+    sentence: sentence(unit, followed, followed === state.hot, alone, rule.limit),
+  });
+}
 
 function worse({ hot, cold }: StoreMismatchState): Followed {
   const ahead =

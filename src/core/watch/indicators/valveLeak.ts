@@ -2,7 +2,7 @@ import type { StoreModel, StoreState } from '../../track/storeTracker.js';
 import { leakSigma } from '../../track/tube.js';
 import type { Indicator, IndicatorRule, IndicatorView } from '../indicator.js';
 import { decisionAt, newInformation, stepSequential } from '../sequential.js';
-import { type Followed, shownAs, startFollowed, withSigma } from './shown.js';
+import { type Followed, remembered, shownAs, stampOf, startFollowed, withSigma } from './shown.js';
 
 /** Values are taken this often while the unit stands [s]: by then the fronts have moved by more than noise. */
 const EVERY_S = 2 * 3600;
@@ -53,7 +53,8 @@ export const VALVE_LEAK: Indicator<ValveLeakState> = {
         const now = leakThrough(store, unit.stores[s] as StoreState, most);
         take(valve, now, store, most, rule, in_control_d, time_ms);
       }
-      return view(valve, store, rule, most);
+      const stamp = `${stampOf(valve.charging)} ${rule.limit}`;
+      return remembered(valve, stamp, () => view(valve, store, rule, most));
     });
   },
 };
