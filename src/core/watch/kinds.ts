@@ -51,6 +51,7 @@ export const INDICATOR_EVENTS: Readonly<Partial<Record<IndicatorKind, EventKind>
   gas_inventory: 'gas_lost',
   settling: 'bed_settled',
   store_mismatch: 'stores_mismatched',
+  front_view: 'front_view_disagrees',
   energy_lost: 'energy_lost',
 };
 

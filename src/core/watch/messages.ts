@@ -134,19 +134,6 @@ export function blindReturned(unit: string): string {
   return `Unit ${unit}: its estimate is a guide again, or the discharge has ended.`;
 }
 
-export function viewRaised(store: string, string: string, sigmas: number, limit: number): string {
-  const ahead = sigmas > 0 ? 'further from' : 'nearer to';
-  return (
-    `Store ${store}, string ${string}: the fitted front stands ${Math.abs(sigmas).toFixed(1)} sigmas ` +
-    `${ahead} the charge inlet than the bed model says (limit ${limit.toFixed(1)}). Hours go by the ` +
-    'bed model. Look at the profile of this string, at its sensors, and at the flow meter.'
-  );
-}
-
-export function viewReturned(store: string, string: string): string {
-  return `Store ${store}, string ${string}: fitted front and bed model agree again, or the front has left the string.`;
-}
-
 export function gasRaised({ channel, store, end, off_K, rock_K }: GasDoubt): string {
   const [inlet, way] =
     end === 'charge_inlet' ? ['charge', 'charging'] : ['discharge', 'discharging'];

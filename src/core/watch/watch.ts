@@ -13,7 +13,7 @@ import {
 } from './condition.js';
 import type { EventKind, WatchEvent } from './event.js';
 import type { IndicatorView } from './indicator.js';
-import { type IndicatorStates, indicatorsOf } from './indicators.js';
+import type { IndicatorStates } from './indicators.js';
 import { INDICATOR_EVENTS, watchEvent } from './kinds.js';
 import * as say from './messages.js';
 import { watchBlind, watchDrop } from './operatorAlarms.js';
@@ -90,7 +90,6 @@ export function stepWatch(
     if (estimate === undefined) continue;
     watchSensors(unit, state, store, estimate, step);
     watchOutlet(unit, store, estimate, input.mode, step);
-    watchViews(unit, store, estimate, step);
   }
   watchGas(input, step);
   watchIndicators(input, step);
@@ -200,29 +199,6 @@ function watchIndicators({ indicators = [], causes = [] }: WatchInput, step: Ste
       state === 'degraded' ? 'active' : state === 'normal' ? 'clear' : ('unknown' as const);
     step(kind, subject, evidence, view, value, limit, (raised) =>
       raised ? say.indicatorRaised(view, causes) : say.indicatorReturned(view),
-    );
-  }
-}
-
-/** A view that only predicts says nothing; a string without a front has nothing to disagree on. */
-function watchViews(
-  unit: UnitDefinition,
-  store: StoreDefinition,
-  estimate: StoreEstimate,
-  step: Step,
-): void {
-  const rule = indicatorsOf(unit).rules.front_view;
-  const { limit } = rule;
-  for (const view of estimate.front_views) {
-    const sigmas = view.disagreement;
-    const size = sigmas === null ? 0 : Math.abs(sigmas);
-    const evidence =
-      sigmas !== null && !view.seen ? 'unknown' : evidenceOf({ ...rule, value: size });
-    const subject = `${store.id}/${view.id}`;
-    step('front_view_disagrees', subject, evidence, rule, sigmas, limit, (raised) =>
-      raised && sigmas !== null
-        ? say.viewRaised(store.id, view.id, sigmas, limit)
-        : say.viewReturned(store.id, view.id),
     );
   }
 }

@@ -226,41 +226,6 @@ describe('an outlet near its limit', () => {
   });
 });
 
-describe('a front view that disagrees', () => {
-  const view = (disagreement: number | null, seen = true): Scan => ({
-    hot: {
-      front_views: [
-        {
-          id: 'a',
-          position_m: 1,
-          position_sigma_m: 0.1,
-          width_m: null,
-          width_sigma_m: null,
-          seen,
-          disagreement,
-        },
-      ],
-    },
-  });
-
-  it('is raised either way beyond three sigmas for a quarter of an hour, and returns below two', () => {
-    const events = run([...times(40, view(-3.4)), ...times(40, view(1.9))]);
-    expect(short(events)).toEqual([
-      '900 one/front_view_disagrees/hot/a raised',
-      '2100 one/front_view_disagrees/hot/a returned',
-    ]);
-    expect(events[0]![1]).toMatchObject({ class: 'alert', priority: 'low', value: -3.4, limit: 3 });
-    expect(events[0]![1].message).toMatch(/3\.4 sigmas nearer to the charge inlet/);
-  });
-
-  it('says nothing while the view only predicts, and returns where no front is left', () => {
-    expect(run(times(60, view(9, false)))).toEqual([]);
-    const scans = [...times(40, view(5)), ...times(60, view(5, false))];
-    expect(run(scans)).toHaveLength(1);
-    expect(run([...scans, ...times(40, view(null, false))])).toHaveLength(2);
-  });
-});
-
 describe('watching as a whole', () => {
   const arbitrary = fc.record({
     mode: fc.constantFrom('charge' as const, 'discharge' as const, 'stand' as const),

@@ -1,75 +1,109 @@
 import { heldOf } from '../follow.js';
-import type { Indicator, IndicatorRule, IndicatorView } from '../indicator.js';
-import { isDue, viewed } from './view.js';
+import type {
+  Indicator,
+  IndicatorRule,
+  IndicatorsDefinition,
+  IndicatorView,
+} from '../indicator.js';
+import {
+  decisionAt,
+  type SequentialState,
+  sequentialScore,
+  startSequential,
+  stepSequential,
+} from '../sequential.js';
+import { dayOf, isDue, viewed } from './view.js';
+import { pitchOf, type WayState, wayOf } from './way.js';
 
 interface StringSeen {
-  degraded: boolean;
-  /** Last time that the string saw the front [ms], and the disagreement then in sigmas. */
-  time_ms: number | null;
+  /** Further from the charge inlet, and nearer to it. */
+  readonly tests: readonly [SequentialState, SequentialState];
+  readonly way: WayState;
+  /** Disagreement as shown [sigmas], and since when; null before the string has seen a front. */
   value: number | null;
-  /** When it was last shown [ms]. */
-  shown_ms: number | null;
+  time_ms: number | null;
 }
 
+/** A front passes a thermocouple's pitch in about an hour: mean spacing of values [s]. */
+const VALUE_EVERY_S = 3600;
+
 /**
- * Fitted front of each string against its tube, in sigmas of their difference. Both take the same
- * readings, so their difference hardly averages out over scans: limit and deadband act on it as it
- * stands, as they do in the event `front_view_disagrees` (watch.ts), and a string that does not see
- * the front says nothing.
+ * Fitted front of each string against its tube, in sigmas of their difference. Neither is right to the
+ * last: a fit that crosses a thermocouple, or two fronts that meet, set them apart for a while. So one
+ * value counts each time the front has gone the pitch of the thermocouples, healthy up to limit less
+ * deadband, degraded from limit and deadband on, which decides for the limit between; a string that does
+ * not see the front says nothing.
  */
 export const AGREEMENT: Indicator<Record<string, StringSeen>> = {
   kind: 'front_view',
   start: () => ({}),
-  step(states, rule, _, input) {
-    return input.model.stores.flatMap((model): IndicatorView[] => {
+  step(states, rule, watching, input) {
+    return input.model.stores.flatMap((model, s): IndicatorView[] => {
       const { id } = model.store;
       const views = input.estimate.stores[id]?.front_views ?? [];
+      const travelled = input.state.views[s]?.twin.travelled_m ?? 0;
       return model.tubes.map(({ string, layout }) => {
         const subject = `${id}/${string.id}`;
         const state = heldOf(states, subject, startHeld);
         const shown = views.find((view) => view.id === string.id);
+        const way_m = wayOf(state.way, travelled);
         let changed = false;
         if (shown?.seen && shown.disagreement !== null) {
-          const size = Math.abs(shown.disagreement);
-          const before = state.degraded;
-          if (size > rule.limit) state.degraded = true;
-          else if (size <= rule.limit - rule.deadband) state.degraded = false;
-          changed = state.degraded !== before || isDue(state.shown_ms, input.time_ms);
+          const counts = way_m >= pitchOf(model);
+          if (counts) {
+            take(state, shown.disagreement, rule, watching);
+            state.way.way_m = 0;
+          }
+          changed = counts || isDue(state.time_ms, input.time_ms);
           if (changed) {
             state.value = shown.disagreement;
             state.time_ms = input.time_ms;
-            state.shown_ms = input.time_ms;
           }
         }
-        return viewed(state, rule, changed, () => view(subject, state, rule, layout.sensors >= 2));
+        const canSee = layout.sensors >= 2;
+        return viewed(state, rule, changed, () => view(subject, state, rule, watching, canSee));
       });
     });
   },
 };
 
 const startHeld = (): StringSeen => ({
-  degraded: false,
-  time_ms: null,
+  tests: [startSequential(), startSequential()],
+  way: { travelled_m: 0, way_m: 0 },
   value: null,
-  shown_ms: null,
+  time_ms: null,
 });
+
+function take(
+  { tests }: StringSeen,
+  sigmas: number,
+  { limit, deadband }: IndicatorRule,
+  watching: IndicatorsDefinition,
+): void {
+  const decision = decisionAt(watching.in_control_d, VALUE_EVERY_S);
+  const sides = { healthy: limit - deadband, degraded: limit + deadband, sigma: 1 };
+  stepSequential(tests[0], { ...sides, value: sigmas }, decision);
+  stepSequential(tests[1], { ...sides, value: -sigmas }, decision);
+}
 
 function view(
   subject: string,
-  seen: StringSeen,
+  { tests, value, time_ms }: StringSeen,
   rule: IndicatorRule,
+  watching: IndicatorsDefinition,
   canSee: boolean,
 ): IndicatorView {
   const [store, string] = subject.split('/') as [string, string];
   const name = `Store ${store}, string ${string}`;
-  const { value } = seen;
-  const state = value === null ? 'undetermined' : seen.degraded ? 'degraded' : 'normal';
+  const degraded = tests.some((test) => test.degraded);
+  const state = degraded ? 'degraded' : value === null ? 'undetermined' : 'normal';
+  const decision = decisionAt(watching.in_control_d, VALUE_EVERY_S);
   const far = `the fitted front stands ${Math.abs(value ?? 0).toFixed(1)} sigmas ${(value ?? 0) > 0 ? 'further from' : 'nearer to'} the charge inlet than the bed model says (limit ${rule.limit.toFixed(1)})`;
   const sentence = !canSee
     ? `${name}: with fewer than two thermocouples no front can be fitted to it.`
     : {
-        degraded: `${name}: ${far}. Look at the profile of this string, at its sensors, and at the flow meter.`,
-        normal: `${name}: ${far}: they agree.`,
+        degraded: `${name}: ${far}, as it has kept on doing. Hours go by the bed model. Look at the profile of this string, at its sensors, and at the flow meter.`,
+        normal: `${name}: ${far}; over the way gone they agree.`,
         undetermined: `${name}: it has not seen a front yet to hold against the bed model.`,
       }[state];
   return {
@@ -84,10 +118,10 @@ function view(
     deadband: rule.deadband,
     on_delay_s: rule.on_delay_s,
     off_delay_s: rule.off_delay_s,
-    score: value === null ? null : Math.min(1, Math.abs(value) / rule.limit),
+    score: value === null ? null : Math.max(...tests.map((t) => sequentialScore(t, decision))),
     state,
     reason: state !== 'undetermined' ? null : canSee ? 'not_exercised' : 'not_instrumented',
-    time: seen.time_ms === null ? null : new Date(seen.time_ms).toISOString(),
+    time: dayOf(time_ms),
     sentence,
   };
 }

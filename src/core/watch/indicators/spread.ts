@@ -15,12 +15,11 @@ import type {
 } from '../indicator.js';
 import { decisionAt } from '../sequential.js';
 import { dayOf, healthyWords, viewed, viewOf } from './view.js';
+import { pitchOf, type WayState, wayOf } from './way.js';
 
 interface StoreFollow {
   readonly follow: FollowState;
-  /** Way of the twin's front at the last scan, and since the last value [m]. */
-  travelled_m: number;
-  way_m: number;
+  readonly way: WayState;
 }
 
 /** A front passes a thermocouple's pitch in about an hour: mean spacing of values [s]. */
@@ -49,14 +48,11 @@ export const SPREAD: Indicator<Record<string, StoreFollow>> = {
     return input.model.stores.map((model, s): IndicatorView => {
       const { id } = model.store;
       const state = heldOf(states, id, startHeld);
-      const travelled = input.state.views[s]?.twin.travelled_m ?? 0;
-      // Counted anew by the twin where a front has left it.
-      state.way_m += travelled >= state.travelled_m ? travelled - state.travelled_m : travelled;
-      state.travelled_m = travelled;
+      const way_m = wayOf(state.way, input.state.views[s]?.twin.travelled_m ?? 0);
       const spread = input.spread[id] ?? null;
-      const due = spread !== null && spread.ratio > 0 && state.way_m >= pitchOf(model);
+      const due = spread !== null && spread.ratio > 0 && way_m >= pitchOf(model);
       if (due) {
-        state.way_m = 0;
+        state.way.way_m = 0;
         const sigma = Math.hypot(spread.sigma / spread.ratio, MODEL_SIGMA);
         const news = { value: Math.log(spread.ratio), sigma };
         follow(state.follow, news, input.time_ms, followRule(model, rule, watching));
@@ -68,13 +64,10 @@ export const SPREAD: Indicator<Record<string, StoreFollow>> = {
   },
 };
 
-const startHeld = (): StoreFollow => ({ follow: startFollow(1), travelled_m: 0, way_m: 0 });
-
-/** Mean distance of the thermocouples on the string that has most [m]. */
-function pitchOf({ store, tubes }: StoreModel): number {
-  const most = Math.max(...tubes.map(({ string }) => string.thermocouples.length));
-  return store.bed.length_m / Math.max(1, most);
-}
+const startHeld = (): StoreFollow => ({
+  follow: startFollow(1),
+  way: { travelled_m: 0, way_m: 0 },
+});
 
 function followRule(
   model: StoreModel,

@@ -2,39 +2,59 @@ import { describe, expect, it } from 'vitest';
 import type { FrontViewEstimate, RejectedSensor } from '../../../../src/core/estimate.js';
 import { AGREEMENT } from '../../../../src/core/watch/indicators/agreement.js';
 import { SENSOR_HEALTH } from '../../../../src/core/watch/indicators/sensorHealth.js';
+import { normals } from '../normals.js';
 import { type Moment, unsound, watchScript } from './filter.js';
 
 const viewOf = (id: string, disagreement: number | null): FrontViewEstimate => ({
   ...{ id, position_m: 1, position_sigma_m: 0.02, width_m: 0.3, width_sigma_m: 0.02 },
   ...{ seen: disagreement !== null, disagreement },
 });
-const hot = (front_views: FrontViewEstimate[]): Moment => ({ estimate: { hot: { front_views } } });
+/** A front that goes 0.8 m an hour, the pitch of the thermocouples, and disagrees as listed by the hour. */
+const course =
+  (sigmas: readonly (number | null)[], id = 'a') =>
+  (hour: number): Moment => ({
+    travelled_m: 0.8001 * hour,
+    estimate: { hot: { front_views: [viewOf(id, sigmas[Math.floor(hour)]!)] } },
+  });
 
 describe('front view against the tubes', () => {
-  it('is degraded beyond the limit and stays so until the deadband is left', () => {
+  it('is degraded where it has kept on beyond the limit, and healthy again likewise', () => {
+    const sigmas = [...Array(10).fill(1.5), ...Array(10).fill(4.5), ...Array(10).fill(0.5)];
     const states: string[] = [];
-    const sigmas = [0, 2.5, 3.5, 2.5, 1.9, null, 3.1];
-    const { of, views } = watchScript(
-      AGREEMENT,
-      6.9,
-      (h) => hot([viewOf('a', sigmas[Math.floor(h)]!)]),
-      {
-        dt_s: 3600,
-        each: (_, [first]) => states.push(first!.state),
-      },
-    );
-    expect(states).toEqual([
-      ...['normal', 'normal', 'degraded', 'degraded', 'normal', 'normal', 'degraded'],
-    ]);
-    expect(of('hot/a')).toMatchObject({ value: 3.1, limit: 3, score: 1, unit: 'sigma' });
+    const { found, of, views } = watchScript(AGREEMENT, 29.9, course(sigmas), {
+      each: (_, [first]) => states.push(first!.state),
+    });
+    expect(found['hot/a']).toBeGreaterThan(12);
+    expect(found['hot/a']).toBeLessThan(15);
+    expect(states.at(-1)).toBe('normal');
+    expect(new Set(states.slice(0, 100))).toEqual(new Set(['normal']));
     expect(of('hot/b')).toMatchObject({ state: 'undetermined', reason: 'not_exercised' });
     expect(views.flatMap(unsound)).toEqual([]);
   });
 
+  it('does not mind a front that is off for less than its way from one thermocouple to the next', () => {
+    const sigmas = [0, 0, 6, 0, 0, -6, 0, 0, 6, 0];
+    expect(watchScript(AGREEMENT, 9.9, course(sigmas)).found).toEqual({});
+  });
+
+  it('is never degraded where healthy ones scatter about what healthy ones come to', () => {
+    const draw = normals(5);
+    const sigmas = Array.from({ length: 600 }, () => 1 + draw());
+    expect(watchScript(AGREEMENT, 599.9, course(sigmas), { dt_s: 1200 }).found).toEqual({});
+  });
+
+  it('takes nothing while it stands, or where the string sees no front', () => {
+    const still = () => ({ ...course([9])(0), travelled_m: 3 });
+    expect(watchScript(AGREEMENT, 20, still).found).toEqual({});
+    const unseen = course(Array(20).fill(null));
+    const { of } = watchScript(AGREEMENT, 19.9, unseen);
+    expect(of('hot/a')).toMatchObject({ reason: 'not_exercised', value: null });
+  });
+
   it('says to which side, by the sign of limit and value', () => {
-    const { of } = watchScript(AGREEMENT, 1, () => hot([viewOf('b', -4)]));
-    expect(of('hot/b')).toMatchObject({ value: -4, limit: -3 });
-    expect(of('hot/b').sentence).toMatch(/4\.0 sigmas nearer to the charge inlet/);
+    const { of } = watchScript(AGREEMENT, 9.9, course(Array(10).fill(-5), 'b'));
+    expect(of('hot/b')).toMatchObject({ value: -5, limit: -3, state: 'degraded' });
+    expect(of('hot/b').sentence).toMatch(/5\.0 sigmas nearer to the charge inlet/);
   });
 });
 
