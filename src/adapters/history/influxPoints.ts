@@ -28,9 +28,10 @@ import type { OutboxItem } from './outbox.js';
  *   where it is of a store: of the unit running_h, span_h, drawn_MWh_el, delivered_MWh_el,
  *   power_most_MW_el, flow_mean_kg_s, soc_from, soc_to, ambient_mean_degC, round_trip, raised (how
  *   many); incomplete (string); of a store soc_from, soc_to, stored_from_MWh_th, stored_to_MWh_th,
- *   stored_sigma_MWh_th, carried_MWh_th, lost_MWh_th, outlet_from_degC, outlet_to_degC, hottest_degC,
- *   coldest_degC, heat_transfer_factor, heat_transfer_factor_sigma, thermocouples_rejected, and at a
- *   quarter, half and three quarters of the length width_25_m, spread_ratio_25, width_50_m and so on
+ *   stored_sigma_MWh_th, carried_MWh_th, lost_MWh_th, lost_sigma_MWh_th, outlet_from_degC,
+ *   outlet_to_degC, hottest_degC, coldest_degC, heat_transfer_factor, heat_transfer_factor_sigma,
+ *   thermocouples_rejected, and at a quarter, half and three quarters of the length width_25_m,
+ *   spread_ratio_25, width_50_m and so on
  */
 export function pointsOf(item: OutboxItem): IPoint[] {
   const timestamp = new Date(item.time_ms);

@@ -76,6 +76,5 @@ export const HISTORY_SCHEMA = [
      seq INTEGER PRIMARY KEY, unit TEXT NOT NULL, "from" INTEGER NOT NULL, time INTEGER NOT NULL,
      kind TEXT NOT NULL, no INTEGER NOT NULL, json TEXT NOT NULL, UNIQUE (unit, "from"));
    CREATE TABLE watch (
-     unit TEXT NOT NULL, time INTEGER NOT NULL, json TEXT NOT NULL, PRIMARY KEY (unit, time))
-     WITHOUT ROWID;`,
+     unit TEXT NOT NULL, time INTEGER NOT NULL, content BLOB NOT NULL, PRIMARY KEY (unit, time));`,
 ];

@@ -1,10 +1,11 @@
+import { deflateSync, inflateSync } from 'node:zlib';
 import { statesOf, type WatchView } from '../../core/watch/causes.js';
 import type { Database } from './database.js';
 
 /** Spacing of the views that are kept [ms], besides those in which an indicator changed its state. */
 const EVERY_MS = 600_000;
 
-/** What indicators showed, by unit and time: every 10 minutes of source time and at each change. */
+/** What indicators showed, by unit and time: every 10 minutes of source time and at each change; deflated. */
 export class WatchViews {
   private readonly due = new Map<string, number>();
   private readonly states = new Map<string, string>();
@@ -20,38 +21,38 @@ export class WatchViews {
     if (!changed && time_ms < (this.due.get(view.unit) ?? Number.NEGATIVE_INFINITY)) return;
     this.due.set(view.unit, (Math.floor(time_ms / EVERY_MS) + 1) * EVERY_MS);
     this.database
-      .prepare('INSERT OR IGNORE INTO watch (unit, time, json) VALUES (?, ?, ?)')
-      .run(view.unit, time_ms, JSON.stringify(view));
+      .prepare('INSERT OR IGNORE INTO watch (unit, time, content) VALUES (?, ?, ?)')
+      .run(view.unit, time_ms, deflateSync(JSON.stringify(view)));
   }
 
   latest(unit: string): WatchView | null {
-    const json = this.database
-      .prepare('SELECT json FROM watch WHERE unit = ? ORDER BY time DESC LIMIT 1')
+    const content = this.database
+      .prepare('SELECT content FROM watch WHERE unit = ? ORDER BY time DESC LIMIT 1')
       .pluck()
-      .get(unit) as string | undefined;
-    return json === undefined ? null : (JSON.parse(json) as WatchView);
+      .get(unit) as Buffer | undefined;
+    return content === undefined ? null : viewOf(content);
   }
 
   /** The newest of a span of time; null where it has none. */
   newestUntil(unit: string, from_ms: number, to_ms: number): WatchView | null {
-    const json = this.database
+    const content = this.database
       .prepare(
-        'SELECT json FROM watch WHERE unit = ? AND time BETWEEN ? AND ? ORDER BY time DESC LIMIT 1',
+        'SELECT content FROM watch WHERE unit = ? AND time BETWEEN ? AND ? ORDER BY time DESC LIMIT 1',
       )
       .pluck()
-      .get(unit, from_ms, to_ms) as string | undefined;
-    return json === undefined ? null : (JSON.parse(json) as WatchView);
+      .get(unit, from_ms, to_ms) as Buffer | undefined;
+    return content === undefined ? null : viewOf(content);
   }
 
   /** Views of a span of time, oldest first, at most `most`. */
   between(unit: string, from_ms: number, to_ms: number, most: number): WatchView[] {
     const rows = this.database
       .prepare(
-        'SELECT json FROM watch WHERE unit = ? AND time BETWEEN ? AND ? ORDER BY time LIMIT ?',
+        'SELECT content FROM watch WHERE unit = ? AND time BETWEEN ? AND ? ORDER BY time LIMIT ?',
       )
       .pluck()
-      .all(unit, from_ms, to_ms, most) as string[];
-    return rows.map((json) => JSON.parse(json) as WatchView);
+      .all(unit, from_ms, to_ms, most) as Buffer[];
+    return rows.map(viewOf);
   }
 
   private statesBefore(unit: string): string | null {
@@ -60,4 +61,8 @@ export class WatchViews {
     const stored = this.latest(unit);
     return stored && statesOf(stored);
   }
+}
+
+function viewOf(content: Buffer): WatchView {
+  return JSON.parse(inflateSync(content).toString()) as WatchView;
 }

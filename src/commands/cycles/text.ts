@@ -41,7 +41,7 @@ export function cyclesText(unit: string, cycles: readonly CycleView[]): string {
       ...[run.no, run.kind, id, percent(store.soc_from), percent(store.soc_to)],
       ...[fixed(store.stored_from_MWh_th, 2), fixed(store.stored_to_MWh_th, 2)],
       ...[fixed(store.carried_MWh_th, 2), fixed(store.lost_MWh_th, 2)],
-      fixed(store.stored_sigma_MWh_th, 2),
+      fixed(run.kind === 'stand' ? store.lost_sigma_MWh_th : null, 2),
       places(store.widths.map(({ width_m }) => width_m)),
       places(store.widths.map(({ spread_ratio }) => spread_ratio)),
       ...[fixed(store.outlet_from_degC, 1), fixed(store.outlet_to_degC, 1)],

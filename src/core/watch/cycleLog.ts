@@ -14,6 +14,7 @@ import {
   addRates,
   addScan,
   merge,
+  noteRaised,
   type Rates,
   type Stretch,
   startStretch,
@@ -98,8 +99,8 @@ export function cycleRules(unit: UnitDefinition): CycleRules {
  * without gap or overlap and their energies add up to the whole. Part loads do not change the mode, and
  * scans that tell no mode are no evidence. The edge is half-way between the two scans about it.
  *
- * Electricity and heat are trapezoids over the scans; power that is not read is held for `gap_s`, then
- * not counted. After a day without any reading the log begins anew.
+ * Electricity and heat are trapezoids between scans with readings, over empty ones too, `gap_s` at most;
+ * power that alone is not read is held as long, then not counted. After a day without any reading the log begins anew.
  *
  * @param state changed in place
  * @param indicators as they stand now
@@ -126,6 +127,11 @@ export function stepCycleLog(
     return forgotten;
   }
   const dt_s = (time_ms - state.last.time_ms) / 1000;
+  const silent_s = (time_ms - (state.seen ?? state.last).time_ms) / 1000;
+  if (!scan.read && silent_s <= rules.gap_s) {
+    noteRaised(state.beside ?? state.open, scan.raised);
+    return forgotten;
+  }
   const now = ratesOf(rules, state, scan, dt_s);
   const before = state.beside ?? state.open;
   count(state, before, state.rates, dt_s / 7200);

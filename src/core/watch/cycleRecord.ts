@@ -27,6 +27,8 @@ export interface StoreRun {
   readonly carried_MWh_th: number | null;
   /** Brought less stored: what went through the wall and ends; of a stand what was lost. */
   readonly lost_MWh_th: number | null;
+  /** Of a stand, at most: errors of readings in both states of charge, and what changed of the lasting ones. */
+  readonly lost_sigma_MWh_th: number | null;
   readonly widths: readonly WidthAtPlace[];
   /** Of the gas that left while it ran, at first and at last; null while standing. */
   readonly outlet_from_K: number | null;

@@ -41,7 +41,13 @@ const OF_UNIT = [
 ];
 const OF_STORE = [
   ...(['soc_from', 'soc_to', 'stored_from_MWh_th', 'stored_to_MWh_th'] as const),
-  ...(['stored_sigma_MWh_th', 'carried_MWh_th', 'lost_MWh_th', 'outlet_from_degC'] as const),
+  ...([
+    'stored_sigma_MWh_th',
+    'carried_MWh_th',
+    'lost_MWh_th',
+    'lost_sigma_MWh_th',
+    'outlet_from_degC',
+  ] as const),
   ...(['outlet_to_degC', 'hottest_degC', 'coldest_degC', 'heat_transfer_factor'] as const),
   ...(['heat_transfer_factor_sigma', 'thermocouples_rejected'] as const),
 ];

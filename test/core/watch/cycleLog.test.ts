@@ -186,8 +186,8 @@ describe('what is missing', () => {
     expect(five.drawn_MWh_el).toBeCloseTo((2 * 200) / 60, 3);
     const six = charge((scan, i) => (i >= 100 && i < 120 ? unread(scan) : scan));
     expect(six.incomplete).toEqual(['gap', 'power_unknown']);
-    // Held for five scans; of the step on to the next reading half is known again.
-    expect(six.drawn_MWh_el).toBeCloseTo((2 * (200 - 15)) / 60, 1);
+    // Of the six intervals until it is too long half is known, of the last one half again.
+    expect(six.drawn_MWh_el).toBeCloseTo((2 * (200 - 21 + 3 + 0.5)) / 60, 3);
   });
 
   it('a gap in the midst does not split; a mode that changed within it ends the run after it', () => {
@@ -373,18 +373,14 @@ function checkEdges(
   for (let i = 1; i < records.length; i++) expect(records[i]!.from).toBe(records[i - 1]!.to);
 }
 
-/** Records and what is under way together: the trapezoids of the power as it was read, held over holes. */
+/** Records and what is under way together: the trapezoids of the power between the scans that were read. */
 function checkEnergies({ records, state }: ReturnType<typeof run>, scans: readonly CycleScan[]) {
   let drawn = 0;
   let delivered = 0;
-  let held = Number.NaN;
-  const powers = scans.map(({ power_MW }) => {
-    held = Number.isFinite(power_MW) ? power_MW : held;
-    return held;
-  });
-  for (let i = 1; i < scans.length; i++) {
-    const hours = (scans[i]!.time_ms - scans[i - 1]!.time_ms) / 3.6e6;
-    for (const power of [powers[i]!, powers[i - 1]!]) {
+  const read = scans.filter(({ power_MW }) => Number.isFinite(power_MW));
+  for (let i = 1; i < read.length; i++) {
+    const hours = (read[i]!.time_ms - read[i - 1]!.time_ms) / 3.6e6;
+    for (const power of [read[i]!.power_MW, read[i - 1]!.power_MW]) {
       drawn += (Math.max(0, power) * hours) / 2;
       delivered += (Math.max(0, -power) * hours) / 2;
     }

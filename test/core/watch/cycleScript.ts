@@ -55,6 +55,8 @@ export function script(parts: readonly Part[], options: ScriptOptions = {}): Cyc
         soc: charge,
         capacity_MWh_th: CAPACITY_MWh,
         stored_sigma_MWh_th: 0.1,
+        soc_lasting: 9e-6 + charge * 1e-6,
+        soc_passing: 1e-6,
         carried_MW: heat_MW,
         position_m: charge * LENGTH_M,
         width_m: 0.5 + charge,

@@ -51,6 +51,7 @@ const storeRunSchema = z.object({
   stored_sigma_MWh_th: z.number(),
   carried_MWh_th: numberOrNull.describe('Brought by the gas, below 0 = taken; null without flow'),
   lost_MWh_th: numberOrNull.describe('Brought less stored; of a stand what was lost'),
+  lost_sigma_MWh_th: numberOrNull.describe('Of a stand; null else'),
   outlet_from_degC: numberOrNull,
   outlet_to_degC: numberOrNull,
   hottest_degC: numberOrNull,

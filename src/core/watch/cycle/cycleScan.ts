@@ -8,6 +8,9 @@ export interface CycleStoreScan {
   /** Heat between the references, by the heat capacity as it is known now [MWh_th]. */
   readonly capacity_MWh_th: number;
   readonly stored_sigma_MWh_th: number;
+  /** Variance of the state of charge: what lasts over a run (offsets), and what does not. */
+  readonly soc_lasting: number;
+  readonly soc_passing: number;
   /** Heat, or cold, that the gas brings [MW], below 0 = takes; 0 while standing, NaN = not known. */
   readonly carried_MW: number;
   /** Energy-equivalent position [m]. */

@@ -7,6 +7,8 @@ export interface StoreEnd {
   readonly soc: number;
   readonly capacity_MWh_th: number;
   readonly stored_sigma_MWh_th: number;
+  readonly soc_lasting: number;
+  readonly soc_passing: number;
   readonly heat_transfer_factor: number;
   readonly heat_transfer_factor_sigma: number;
   readonly flow_factors: Readonly<Record<string, number>>;
@@ -30,6 +32,8 @@ export function endsOf(scan: CycleScan): Ends {
       soc: store.soc,
       capacity_MWh_th: store.capacity_MWh_th,
       stored_sigma_MWh_th: store.stored_sigma_MWh_th,
+      soc_lasting: store.soc_lasting,
+      soc_passing: store.soc_passing,
       heat_transfer_factor: store.heat_transfer_factor,
       heat_transfer_factor_sigma: store.heat_transfer_factor_sigma,
       flow_factors: store.flow_factors,

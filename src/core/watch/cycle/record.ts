@@ -97,6 +97,8 @@ function storeRun(stretch: Stretch, mode: Mode, s: number): StoreRun {
     stored_sigma_MWh_th: end.stored_sigma_MWh_th,
     carried_MWh_th: stretch.flowed ? sums.carried_MWh : null,
     lost_MWh_th: known(lost),
+    lost_sigma_MWh_th:
+      mode === 'stand' ? known(end.capacity_MWh_th * changeSigma(start, end)) : null,
     widths,
     outlet_from_K: known(outlet?.from_K),
     outlet_to_K: known(outlet?.to_K),
@@ -107,4 +109,14 @@ function storeRun(stretch: Stretch, mode: Mode, s: number): StoreRun {
     flow_factors: end.flow_factors,
     thermocouples_rejected: end.thermocouples_rejected,
   };
+}
+
+/**
+ * Sigma of a change of the state of charge over a stand, as of a run in `heatBalance.ts`: what lasts of
+ * the two errors is in both and counts by its difference, sqrt(p_0 + p_1 + |l_0 - l_1|). What passes is
+ * taken as independent at the two ends, though a filter remembers some of it.
+ */
+function changeSigma(start: StoreEnd, end: StoreEnd): number {
+  const lasting = Math.abs(start.soc_lasting - end.soc_lasting);
+  return Math.sqrt(start.soc_passing + end.soc_passing + lasting);
 }

@@ -93,10 +93,15 @@ export function addRates(stretch: Stretch, rates: Rates, hours: number): void {
   own.flow_s += seconds;
 }
 
+/** Takes alarms and alerts in, each once. */
+export function noteRaised(stretch: Stretch, raised: readonly string[]): void {
+  for (const id of raised) if (!stretch.raised.includes(id)) stretch.raised.push(id);
+}
+
 /** Takes what one scan shows in itself. */
 export function addScan(stretch: Stretch, scan: CycleScan, end: Ends): void {
   stretch.end = end;
-  for (const id of scan.raised) if (!stretch.raised.includes(id)) stretch.raised.push(id);
+  noteRaised(stretch, scan.raised);
   const own = modeSums(stretch, scan.mode);
   scan.stores.forEach((store, s) => {
     const sums = stretch.stores[s] as StoreSums;
@@ -119,7 +124,7 @@ export function merge(stretch: Stretch, next: Stretch): void {
   stretch.power_most_MW = Math.max(stretch.power_most_MW, next.power_most_MW);
   stretch.flowed ||= next.flowed;
   stretch.gap ||= next.gap;
-  stretch.raised = [...new Set([...stretch.raised, ...next.raised])];
+  noteRaised(stretch, next.raised);
   stretch.stores.forEach((sums, s) => {
     const other = next.stores[s] as StoreSums;
     sums.carried_MWh += other.carried_MWh;

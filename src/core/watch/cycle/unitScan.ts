@@ -57,6 +57,9 @@ function storeScan(
   const own = estimate.stores[id] as StoreEstimate;
   const outlet_K = outletOf(model, s, scan, conditions, own);
   const front = nearestFront(own);
+  // As in the heat balance; what no string sees does not change while the store stands.
+  const seen = Math.max(0, energy.soc_sigma ** 2 - energy.unseen ** 2);
+  const lasting = seen * (state.balances[s]?.share ?? 0);
   const { coldest_K, hottest_K } = extremes(store, state.stores[s] as StoreState);
   return {
     id,
@@ -64,6 +67,8 @@ function storeScan(
     soc: energy.soc,
     capacity_MWh_th: energy.capacity_MWh_th,
     stored_sigma_MWh_th: energy.stored_sigma_MWh_th,
+    soc_lasting: lasting,
+    soc_passing: seen - lasting,
     carried_MW: carried_W(store, conditions.flow_kg_s, inlet_K, outlet_K) / 1e6,
     position_m: own.energy_position_m,
     width_m: front?.width_m ?? null,
