@@ -26,6 +26,8 @@ const OWN_COUNTS = [
   'mode_disagreements',
   'history_failures',
   'events',
+  /** Events that the history never had, since it could not be written for too long. */
+  'events_lost',
   /** Events that the broker has taken as messages of their own, and tries that failed. */
   'events_told',
   'events_told_failures',

@@ -13,6 +13,8 @@ import type { RunnerStep, UnitRunner } from './unitRunner.js';
 const SLICE_MS = 25;
 /** Journal entries read at a time. */
 const PAGE = 512;
+/** Events kept while the history cannot be written; what is beyond is counted as lost. */
+const MOST_UNSTORED = 10_000;
 /** After a failure to read the journal [ms]. */
 const RETRY_MS = 1000;
 
@@ -52,6 +54,8 @@ export class Pipeline {
   private readonly nextCheckpoint = new Map<string, number>();
   private readonly failing = new Map<string, string>();
   private storeTrouble: string | null = null;
+  /** Events told while the history could not be written, in their order. */
+  private unstored: WatchEvent[] = [];
 
   constructor(private readonly options: PipelineOptions) {}
 
@@ -207,7 +211,7 @@ export class Pipeline {
   }
 
   private enter(runner: UnitRunner, step: RunnerStep): void {
-    const { history, stepped, event, alarmsMoved } = this.options;
+    const { history, counters, stepped, event, alarmsMoved } = this.options;
     const { estimate, profile, events, cycle, watch } = step.step;
     const time_ms = Date.parse(estimate.time);
     try {
@@ -218,15 +222,20 @@ export class Pipeline {
         if (watch) history.watch.add(watch);
         // A scan that is known, as in a replay after a restart, has moved its alarms already.
         const moved = isNew && history.alarms.scan(runner.unit.id, estimate.mode, time_ms);
-        return { isNew, moved, events: events.filter((one) => history.events.add(one)) };
+        const late = this.unstored.filter((one) => history.events.add(one));
+        return { isNew, moved, late, events: events.filter((one) => history.events.add(one)) };
       });
       this.storeTrouble = null;
+      this.unstored = [];
+      for (const unit of new Set(news.late.map((one) => one.unit))) alarmsMoved(unit);
       if (news.isNew) stepped(runner, step);
       for (const one of news.events) event(one);
       if (news.moved) alarmsMoved(runner.unit.id);
     } catch (thrown) {
-      // What cannot be stored is said all the same.
+      // What cannot be stored is said all the same, and stored with the next scan that can be.
       this.storeFailed('history_failures', thrown);
+      this.unstored.push(...events);
+      counters.add('events_lost', this.unstored.splice(MOST_UNSTORED).length);
       stepped(runner, step);
       for (const one of events) event(one);
     }
@@ -255,6 +264,18 @@ export class Pipeline {
     }
   }
 
+  /** `KIND/SUBJECT` of what the unit's estimator has raised. */
+  private standingOf(unit: string): ReadonlySet<string> {
+    try {
+      const events = this.options.history.alarms.active(unit);
+      const own = events.filter(({ kind }) => kind !== 'database_unreachable');
+      return new Set(own.map(({ kind, subject }) => `${kind}/${subject}`));
+    } catch (thrown) {
+      this.storeFailed('history_failures', thrown);
+      return new Set();
+    }
+  }
+
   private storeFailed(kind: 'journal_failures' | 'history_failures', thrown: unknown): void {
     this.storeTrouble = reasonOf(thrown);
     this.options.counters.add(kind);
@@ -269,10 +290,11 @@ export class Pipeline {
       `scan_failures ${runner.unit.id}`,
       `unit ${runner.unit.id}: a scan could not be taken in: ${reasonOf(thrown)}`,
     );
+    const standing = this.standingOf(runner.unit.id);
     try {
-      runner.recover(history.checkpoints.list(runner.unit)[0]);
+      runner.recover(history.checkpoints.list(runner.unit)[0], standing);
     } catch {
-      runner.recover(undefined);
+      runner.recover(undefined, standing);
     }
   }
 }

@@ -16,6 +16,7 @@ import { PlantClock } from '../core/scan/plantClock.js';
 import type { Scan } from '../core/scan/scan.js';
 import type { ScanCounts } from '../core/scanCounts.js';
 import type { UnitSnapshot, UnitState, UnitStep } from '../core/unit.js';
+import { alignWatch } from '../core/watch/align.js';
 import type { WatchView } from '../core/watch/causes.js';
 import type { Core } from './core.js';
 
@@ -163,11 +164,14 @@ export class UnitRunner {
   }
 
   /** After a failure of the core: back to a sound state, or to none; time passes on from there. */
-  recover(checkpoint: StoredCheckpoint | undefined): void {
+  recover(checkpoint: StoredCheckpoint | undefined, standing: ReadonlySet<string>): void {
     const image = checkpoint?.load() as RunnerImage | undefined;
     this.state = image
       ? this.core.restoreUnit(this.unit, image.unit)
       : this.core.startUnit(this.unit);
+    // A core of a test may watch nothing.
+    const { watch } = this.state as Partial<UnitState>;
+    if (watch) alignWatch(watch, standing);
   }
 }
 

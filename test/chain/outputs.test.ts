@@ -193,7 +193,7 @@ describe.skipIf(!mosquitto)('a running daemon', () => {
 
     it('has every route that README.md names', () => {
       const readme = readFileSync(new URL('../../README.md', import.meta.url), 'utf8');
-      const named = [...readme.matchAll(/`(?:GET|POST)? ?(\/(?:api\/[\w/{}]+|metrics))[`?]/g)];
+      const named = [...readme.matchAll(/`(?:GET|POST)? ?(\/(?:api\/[\w/{}-]+|metrics))[`?]/g)];
       const routes = new Set(named.map(([, route]) => route!));
       routes.delete('/api/openapi.json');
       expect([...routes].sort()).toEqual(Object.keys(document.paths).sort());

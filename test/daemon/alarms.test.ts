@@ -1,3 +1,5 @@
+import { join } from 'node:path';
+import SQLite from 'better-sqlite3';
 import { afterEach, describe, expect, it } from 'vitest';
 import type { AlarmCommand } from '../../src/core/alarm/command.js';
 import type { Estimate } from '../../src/core/estimate.js';
@@ -68,7 +70,7 @@ async function started(clock?: DaemonClock) {
   };
   const states = () =>
     [...daemon.service.standing(), ...daemon.service.heldBack()].map((one) => one.state);
-  return { daemon, client, heard, scan, of, send, states };
+  return { site, daemon, client, heard, scan, of, send, states };
 }
 
 const ID = 'u/front_spread/hot';
@@ -187,6 +189,26 @@ describe('rules and time', () => {
     expect(states()).toContain('shelved');
     clock.ahead_ms = 2 * 3_600_000 + 1000;
     await waitFor('it is shown', () => states().includes('unacknowledged'));
+  });
+});
+
+describe('a history that cannot be written for a while', () => {
+  it('has what was raised meanwhile once it can', async () => {
+    const { site, daemon, scan, states } = await started();
+    await scan();
+    const lock = new SQLite(join(site.store.folder, 'history.sqlite'));
+    lock.exec('BEGIN IMMEDIATE');
+    await scan(['front_spread', 'hot', 'raised']);
+    await counted(daemon, 'history_failures', 1);
+    expect(states()).toEqual([]);
+    expect(count(daemon, 'events')).toBe(1);
+    lock.exec('COMMIT');
+    lock.close();
+    await scan();
+    await waitFor('the alarm', () => states().length === 1);
+    expect(daemon.service.events('u', 0, 1e15, 9)).toMatchObject([{ id: ID }]);
+    // Told once, when it happened.
+    expect([count(daemon, 'events'), count(daemon, 'events_lost')]).toEqual([1, 0]);
   });
 });
 
