@@ -46,7 +46,9 @@ interface Mean {
 const noMean = (): Mean => ({ weight: 0, sum: 0 });
 
 interface Drop {
-  readonly followed: Followed;
+  /** Tests while rock is below freezing, and while none is: warm hours do not undo what frost has shown. */
+  readonly freezing: Followed;
+  readonly thawed: Followed;
   readonly healthy: BaselineState;
   /** Of the block that runs: time, scans, sums of drop, flow and pressure; least and greatest flow. */
   block_s: number;
@@ -58,6 +60,7 @@ interface Drop {
   most_kg_s: number;
   /** Of the value that is made up. */
   blocks: number;
+  coldBlocks: number;
   ratios: number;
   /** While rock is below freezing, and while none is. */
   cold: Mean;
@@ -83,7 +86,7 @@ export const PRESSURE_DROP: Indicator<PressureDropState> = {
       const drop = state.stores[s] as Drop;
       const channel = channelOf(input.model, 'pressure_drop', store.store.id);
       if (channel >= 0) follow(drop, store, s, channel, rule, watching, input);
-      const stamp = `${stampOf(drop.followed)} ${rule.limit}`;
+      const stamp = `${stampOf(drop.freezing)} ${stampOf(drop.thawed)} ${rule.limit}`;
       return remembered(drop, stamp, () => view(drop, store, channel, rule));
     });
   },
@@ -91,10 +94,12 @@ export const PRESSURE_DROP: Indicator<PressureDropState> = {
 
 function startDrop(): Drop {
   return {
-    followed: startFollowed(),
+    freezing: startFollowed(),
+    thawed: startFollowed(),
     healthy: startBaseline(),
     ...EMPTY_BLOCK,
     blocks: 0,
+    coldBlocks: 0,
     ratios: 0,
     cold: noMean(),
     warm: noMean(),
@@ -168,11 +173,13 @@ function follow(
   if (drop.blocks < BLOCKS) return;
   take(drop, drop.ratios / drop.blocks, rule, watching, time_ms);
   drop.blocks = 0;
+  drop.coldBlocks = 0;
   drop.ratios = 0;
 }
 
 function note(drop: Drop, ratio: number, profile: Float64Array): void {
   const coldest = profile.reduce((least, t) => Math.min(least, t), Number.POSITIVE_INFINITY);
+  if (coldest < FREEZING_K) drop.coldBlocks++;
   if (Math.abs(coldest - FREEZING_K) < EITHER_WAY_K) return;
   const mean = coldest < FREEZING_K ? drop.cold : drop.warm;
   const keep = Math.exp(-BLOCK_S / FADE_S);
@@ -198,7 +205,7 @@ function take(
   { in_control_d, baseline_from_ms }: IndicatorsDefinition,
   time_ms: number,
 ): void {
-  const { followed } = drop;
+  const followed = 2 * drop.coldBlocks > drop.blocks ? drop.freezing : drop.thawed;
   const known = healthyOf(drop);
   const value = ratio / known.value;
   const spread = known.sigma / known.value;
@@ -207,12 +214,15 @@ function take(
   const tested = { value, sigma: VALUE_SIGMA * value, healthy, degraded: healthy * rule.limit };
   stepSequential(followed.test, tested, followed.decision);
   // Nothing speaks for an excess: what comes from now on may be one (Page's estimate of the change).
-  if (followed.test.up === 0) Object.assign(drop, { cold: noMean(), warm: noMean() });
+  const both = [drop.freezing.test, drop.thawed.test];
+  if (both.every(({ up, degraded }) => up === 0 && !degraded))
+    Object.assign(drop, { cold: noMean(), warm: noMean() });
   followed.value = value;
   followed.sigma = Math.hypot(VALUE_SIGMA, spread) * value;
   followed.time_ms = time_ms;
-  drop.only = followed.test.degraded ? onlyWhileCold(drop, known.value, rule) : null;
-  if (followed.test.degraded || followed.test.up > 0.25 * followed.decision) return;
+  const found = both.some(({ degraded }) => degraded);
+  drop.only = found ? onlyWhileCold(drop, known.value, rule) : null;
+  if (found || followed.test.up > 0.25 * followed.decision) return;
   const own = { value: ratio, sigma: VALUE_SIGMA * ratio };
   learnBaseline(drop.healthy, own, time_ms, baseline_from_ms, RULE);
 }
@@ -223,7 +233,7 @@ function view(
   channel: number,
   rule: IndicatorRule,
 ): IndicatorView {
-  const { followed } = drop;
+  const followed = worse(drop);
   const known = healthyOf(drop);
   const { only } = drop;
   const shown = shownAs({
@@ -235,9 +245,20 @@ function view(
     healthy: channel < 0 ? null : 1,
     healthy_from: known.learned ? 'learned' : 'configured',
     reason: channel < 0 ? 'not_instrumented' : drop.healthy.kept ? null : 'learning',
-    sentence: sentence(store.id, drop, channel, known.learned, only, rule),
+    sentence: sentence(store.id, followed, drop.healthy, channel, known.learned, only, rule),
   });
   return { ...shown, only_while_cold: only };
+}
+
+/** The test that is further on; of two alike the one with the newer value. */
+function worse({ freezing, thawed }: Drop): Followed {
+  const a = freezing.test;
+  const b = thawed.test;
+  const ahead =
+    Number(a.degraded) - Number(b.degraded) ||
+    a.up - b.up ||
+    (freezing.time_ms ?? 0) - (thawed.time_ms ?? 0);
+  return ahead > 0 ? freezing : thawed;
 }
 
 /**
@@ -253,7 +274,8 @@ function onlyWhileCold({ cold, warm }: Drop, healthy: number, rule: IndicatorRul
 
 function sentence(
   store: string,
-  { followed, healthy }: Drop,
+  followed: Followed,
+  healthy: BaselineState,
   channel: number,
   learned: boolean,
   only: boolean | null,

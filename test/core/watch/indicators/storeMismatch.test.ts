@@ -1,0 +1,43 @@
+import { describe, expect, it } from 'vitest';
+import { STORE_MISMATCH } from '../../../../src/core/watch/indicators/storeMismatch.js';
+import { normals } from '../normals.js';
+import { demo, Rig } from './rig.js';
+
+/** Cycles after which the hot store holds `more` of its charge than the cold one, on top of the usual. */
+function cycles() {
+  const rig = new Rig(STORE_MISMATCH, demo, 600);
+  const z = normals(10);
+  const cycle = (more: number) => {
+    const apart = 0.04 + more + 0.01 * z();
+    const level = (soc: number) => [soc + apart, soc] as const;
+    rig.run(4, () => ({ mode: 'charge', flow_kg_s: 18, soc: level(0.85) }));
+    rig.run(1, () => ({ mode: 'stand', soc: level(0.85) }));
+    rig.run(3, () => ({ mode: 'discharge', flow_kg_s: -22, soc: level(0.15) }));
+    return rig.run(1, () => ({ mode: 'stand', soc: level(0.15) }))[0]!;
+  };
+  return { rig, cycle };
+}
+
+describe('store mismatch', () => {
+  it('is what goes beyond the usual difference at the ends of runs', () => {
+    const { cycle } = cycles();
+    let view = cycle(0);
+    expect(view).toMatchObject({ state: 'undetermined', reason: 'learning' });
+    for (let n = 0; n < 8; n++) view = cycle(0);
+    expect(view).toMatchObject({ state: 'normal', healthy_from: 'learned' });
+    for (let n = 0; n < 4; n++) view = cycle(0.2);
+    expect(view).toMatchObject({ state: 'degraded', subject: 'vellmoor' });
+    expect(view.sentence).toMatch(/the hot store holds .* more/);
+    const scale = new Rig(STORE_MISMATCH).model.fullHours / demo.rated_hours;
+    expect(view.value!).toBeCloseTo(0.2 * scale, 1);
+  });
+
+  it('shows at the end of a run, and not by a store alone', () => {
+    const { rig } = cycles();
+    expect(rig.run(2, () => ({ mode: 'charge', flow_kg_s: 18 }))[0]).toMatchObject({
+      state: 'undetermined',
+      reason: 'not_exercised',
+      value: null,
+    });
+  });
+});
