@@ -45,16 +45,17 @@ const BASELINE = { floor: 0.01, enough: 0.013, least: 2 };
  * Dispatchable energy lost to degradation: what the unit would deliver at rated power from its present
  * heat with the healthy twins' fronts, less what it delivers from the estimate, over the rated energy.
  * Both from the same stored heat, meter and machine, so that what is uncertain there drops out; sigma
- * is what the widths leave open, and the rollouts. Looked at where the state of charge is rolled out
- * anyway (every 10 min, on a change of mode), while there is something to discharge; the last value
- * of each charge is tested, when the stores are fullest.
+ * is what the widths leave open, and the rollouts. Looked at once an hour, where the state of charge is
+ * rolled out anyway, while there is something to discharge, and at the end of a charge, when the stores
+ * are fullest: that value is tested.
  */
 export const ENERGY_LOST: Indicator<UnitFollow> = {
   kind: 'energy_lost',
   start: () => ({ follow: startFollow(1), last: null, charge: null }),
   step(state, rule, watching, input) {
     const { mode } = input.taken.conditions;
-    const lost = lostNow(input);
+    const ends = mode !== 'charge' && state.charge !== null;
+    const lost = ends || isOld(state.last, input.time_ms) ? lostNow(input) : null;
     let changed = lost !== null;
     if (lost !== null) state.last = lost;
     if (mode === 'charge') {
@@ -71,6 +72,11 @@ export const ENERGY_LOST: Indicator<UnitFollow> = {
     ];
   },
 };
+
+/** True where a value is of another hour: often enough for what changes over days. */
+function isOld(last: Lost | null, time_ms: number): boolean {
+  return last === null || Math.floor(time_ms / 3.6e6) !== Math.floor(last.time_ms / 3.6e6);
+}
 
 function followRule(rule: IndicatorRule, watching: IndicatorsDefinition): FollowRule {
   return {
