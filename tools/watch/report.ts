@@ -73,7 +73,7 @@ export function watchBlocks(
     const right = own.filter((j) => j.outcome === 'right').length;
     const goal = { least: Math.ceil(FOUND_SHARE * own.length - 1e-9) };
     const note = `of ${own.length}, within ${branch.window_h} h`;
-    return [figure(`${branch.words}: found with its cause`, right, 'seeds', goal, note)];
+    return [figure(`${branch.words}, right cause`, right, 'seeds', goal, note)];
   });
   const blocks: Block[] = [];
   const title = 'watch: strongest grade of each fault';
