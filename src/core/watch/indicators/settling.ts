@@ -26,6 +26,10 @@ const APART_K = 5;
  * the gas cools by 0.2 K a minute, noise, what the model makes wrong of rock near the lid [K].
  */
 const CHANGE_K = 0.8;
+/** Rock near the lid loses as much more or less than modelled as insulation does; so, of its own change. */
+const ROCK_SHARE = 0.7;
+/** Later in a rest both cool together, and what they part by takes hours: no value of that [s]. */
+const PAIR_S = 5400;
 /** Share of the gas's movement that a covered junction just below the surface may show. */
 const COVERED = 0.2;
 const SHARE_SIGMA = 0.15;
@@ -42,7 +46,12 @@ interface Top {
   readonly followed: Followed;
   sum_K: number;
   /** Reading, gas and rock that changes are counted from [K]; null = none. */
-  from: { readonly read_K: number; readonly gas_K: number; readonly rock_K: number } | null;
+  from: {
+    readonly stood_s: number;
+    readonly read_K: number;
+    readonly gas_K: number;
+    readonly rock_K: number;
+  } | null;
 }
 
 interface Level {
@@ -217,6 +226,7 @@ function compare(
   const gas_K = level.gas_K / level.scans;
   for (const top of level.tops) {
     const now = {
+      stood_s: level.stood_s,
       read_K: top.sum_K / level.scans,
       gas_K,
       rock_K: rockAt(level.beds as Float64Array[], model, top),
@@ -227,10 +237,12 @@ function compare(
     if (from === null) continue;
     const rocks = now.rock_K - from.rock_K;
     const apart = gas_K - from.gas_K - rocks;
-    if (Math.abs(apart) < APART_K) continue;
+    const old = now.stood_s - from.stood_s > PAIR_S;
+    if (Math.abs(apart) < APART_K && !old) continue;
     top.from = now;
+    if (old) continue;
     const value = (now.read_K - from.read_K - rocks) / apart;
-    const sigma = Math.hypot(CHANGE_K / apart, SHARE_SIGMA);
+    const sigma = Math.hypot(CHANGE_K / apart, (ROCK_SHARE * rocks) / apart, SHARE_SIGMA);
     const tested = { value, sigma, healthy: COVERED, degraded: 1 };
     take(level, top, tested, in_control_d, time_ms);
   }
