@@ -7,6 +7,7 @@ import {
   heldOf,
   startFollow,
 } from '../follow.js';
+import type { TwinState } from '../healthyTwin.js';
 import type {
   Indicator,
   IndicatorRule,
@@ -20,6 +21,8 @@ import { pitchOf, type WayState, wayOf } from './way.js';
 interface StoreFollow {
   readonly follow: FollowState;
   readonly way: WayState;
+  /** Starts of the twin that are known to hide nothing. */
+  restarts: number;
 }
 
 /** A front passes a thermocouple's pitch in about an hour: mean spacing of values [s]. */
@@ -31,7 +34,8 @@ const VALUE_EVERY_S = 3600;
  * that off.
  */
 const MODEL_SIGMA = 0.05;
-const BASELINE = { floor: 0.05, enough: 0.06, least: 6 };
+/** The twin starts with the bed's own front, so that the first half cycle tells little: a cycle's values at least. */
+const BASELINE = { floor: 0.05, enough: 0.06, least: 12 };
 /** d ln width / d ln phi_h at most, where the lag between gas and rock makes all of the width. */
 const WIDTH_PER_TRANSFER = 0.5;
 
@@ -48,9 +52,11 @@ export const SPREAD: Indicator<Record<string, StoreFollow>> = {
     return input.model.stores.map((model, s): IndicatorView => {
       const { id } = model.store;
       const state = heldOf(states, id, startHeld);
-      const way_m = wayOf(state.way, input.state.views[s]?.twin.travelled_m ?? 0);
+      const twin = input.state.views[s]?.twin;
+      const way_m = wayOf(state.way, twin?.travelled_m ?? 0);
+      const hides = startHides(state, twin);
       const spread = input.spread[id] ?? null;
-      const due = spread !== null && spread.ratio > 0 && way_m >= pitchOf(model);
+      const due = spread !== null && spread.ratio > 0 && !hides && way_m >= pitchOf(model);
       if (due) {
         state.way.way_m = 0;
         const sigma = Math.hypot(spread.sigma / spread.ratio, MODEL_SIGMA);
@@ -67,7 +73,22 @@ export const SPREAD: Indicator<Record<string, StoreFollow>> = {
 const startHeld = (): StoreFollow => ({
   follow: startFollow(1),
   way: { travelled_m: 0, way_m: 0 },
+  restarts: 0,
 });
+
+/**
+ * A twin that was started anew from a bed that counts as degraded has its front: until that has left the
+ * twin, a ratio of 1 is no news.
+ *
+ * @param state changed in place
+ */
+function startHides(state: StoreFollow, twin: TwinState | undefined): boolean {
+  if (twin === undefined || twin.restarts === state.restarts) return false;
+  const degraded = state.follow.tests.some((test) => test.degraded);
+  if (degraded && twin.startWidth_m2 > 0) return true;
+  state.restarts = twin.restarts;
+  return false;
+}
 
 function followRule(
   model: StoreModel,

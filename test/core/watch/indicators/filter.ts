@@ -29,6 +29,9 @@ export interface Moment {
   readonly step?: 'updated' | 'reacquired' | 'missed';
   readonly spread?: Readonly<Record<string, SpreadRatio | null>>;
   readonly travelled_m?: number;
+  /** Starts of the twin anew, and whether the front that it started with is still in it. */
+  readonly restarts?: number;
+  readonly startLeft?: boolean;
   readonly estimate?: Readonly<Record<string, Partial<StoreEstimate>>>;
   readonly balances?: Readonly<Record<string, HeatBalance>>;
 }
@@ -152,7 +155,13 @@ export function watchScript<S>(
       state: {
         stores,
         balances: models.map(({ store }) => moment.balances?.[store.id]),
-        views: models.map(() => ({ twin: { travelled_m: moment.travelled_m ?? 0 } })),
+        views: models.map(() => ({
+          twin: {
+            travelled_m: moment.travelled_m ?? 0,
+            restarts: moment.restarts ?? 0,
+            startWidth_m2: moment.startLeft ? 0 : 0.1,
+          },
+        })),
       },
       taken: {
         conditions: {

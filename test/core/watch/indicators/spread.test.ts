@@ -66,6 +66,17 @@ describe('width against the healthy twin', () => {
     expect(of('hot').state).toBe('normal');
   });
 
+  it('does not return because the twin was started anew with the degraded front', () => {
+    const course = script((h) => (h < 48 ? 1 : h < 72 ? 1.8 : 1));
+    const ended = (startLeft: boolean) =>
+      watchScript(SPREAD, 120, (hour) => ({
+        ...course(hour),
+        ...(hour < 72 ? {} : { restarts: 1, startLeft }),
+      })).of('hot').state;
+    expect(ended(false)).toBe('degraded');
+    expect(ended(true)).toBe('normal');
+  });
+
   it('takes one value per pitch of the thermocouples, and none without a ratio', () => {
     let values = 0;
     let last: string | null = null;
