@@ -20,7 +20,6 @@ export function run(part: Partial<StoreRun> = {}): StoreRun {
   return {
     ...{ soc_from: 0.2, soc_to: 0.7, stored_from_MWh_th: 10, stored_to_MWh_th: 35 },
     ...{ stored_sigma_MWh_th: 0.1, carried_MWh_th: 25.2, lost_MWh_th: 0.2 },
-    lost_sigma_MWh_th: null,
     lost_sigma_MWh_th: 0.05,
     widths: [{ share: 0.5, place_m: 4.6, width_m: 0.8, width_sigma_m: 0.05, spread_ratio: 1.02 }],
     ...{ outlet_from_K: 300, outlet_to_K: 310, hottest_K: 733, coldest_K: 298 },
