@@ -27,7 +27,7 @@ export type Stretch = Onset | 'weeks' | string;
 export const TRUTH_CODE = 'tools/watch/plantRun.ts';
 
 /** All that a stretch is made of; plain data, so that its text names it in the cache. */
-interface StretchPlan {
+export interface StretchPlan {
   /** Stretches before it, from the start of the plant. */
   readonly before: readonly (readonly Segment[])[];
   readonly segments: readonly Segment[];
@@ -43,7 +43,8 @@ function lengthOf(stretches: readonly (readonly Segment[])[]): number {
     .reduce((sum, s) => sum + scan_period_s * Math.round(s.duration_s / scan_period_s), 0);
 }
 
-function planOf(seed: number, stretch: Stretch): StretchPlan {
+/** @throws RangeError for a stretch that there is not */
+export function planOf(seed: number, stretch: Stretch): StretchPlan {
   const nothing = { changes: [], faults: [] };
   const lead = leadSegments(seed);
   const way = waySegments(seed);
