@@ -9,8 +9,9 @@ export interface RestReading {
   readonly ends_K: number;
   /** Per unit of ln conductivity [K]. */
   readonly conductivity_K: number;
-  /** dT/dx there [K/m], and what the model itself has moved it by [K]. */
+  /** dT/dx there at first, that of the front, and its change since [K/m]; what the model has moved it by [K]. */
   readonly slope_K_m: number;
+  readonly bent_K_m: number;
   readonly moved_K: number;
   readonly string: number;
   /** Card or cold junction that it shares; null = none. */
@@ -29,6 +30,8 @@ const LEAK_WAY_M = 0.3;
 const STRING_WAY_M = 0.03;
 /** Of one thermocouple: how well the model knows the front's shape there [m]. */
 const SHAPE_M = 0.05;
+/** Of its place: a constant error shows in what the slope has changed by [m]. */
+const PLACE_M = 0.01;
 /** Share of its own movement that the model may err by. */
 const MOVED_SHARE = 0.15;
 /** ln of the bed's conductivity, and how far ends may lose otherwise than the mantle, of the loss. */
@@ -76,7 +79,7 @@ export function fitRest(
     row[3 + strings.indexOf(r.string)] = r.slope_K_m;
     if (r.group !== null) row[3 + strings.length + groups.indexOf(r.group)] = 1;
     row[e] = r.mantle_K + r.ends_K;
-    const fresh = Math.hypot(priors.noise_K, SHAPE_M * r.slope_K_m);
+    const fresh = Math.hypot(priors.noise_K, SHAPE_M * r.slope_K_m, PLACE_M * r.bent_K_m);
     const weight = 1 / (fresh ** 2 + (MOVED_SHARE * r.moved_K) ** 2);
     return { row, weight, fresh, y: r.off_K };
   });

@@ -32,7 +32,7 @@ const PRIOR_SIGMA = 0.35;
  */
 const MODEL_LOSS = 0.06;
 /** A value less certain than this, in configured losses, tells nothing yet. */
-const USELESS = 0.5;
+const USELESS = 0.4;
 const RULE = { floor: 0.05, enough: 0.16, least: 1 };
 /** Readings that move otherwise than any cause allows, by mean square over noise, tell nothing [-]. */
 const MISFIT_MOST = 9;
@@ -48,6 +48,8 @@ interface Standing {
   stood_s: number;
   look_s: number;
   rest: Rest | null;
+  /** A rest was looked at, and told too little. */
+  vain: boolean;
   /** What the present rest has told so far, in configured losses. */
   told: Told | null;
   readonly followed: Followed;
@@ -75,7 +77,7 @@ export const STANDING_LOSS: Indicator<StandingLossState> = {
       const away_m = fromWall(store);
       if (away_m <= REACH_M) follow(standing, store, s, rule, watching, input);
       const { followed, healthy } = standing;
-      const stamp = `${stampOf(followed)} ${healthy.count} ${healthy.begun_ms} ${rule.limit}`;
+      const stamp = `${stampOf(followed)} ${standing.vain} ${healthy.count} ${healthy.begun_ms} ${rule.limit}`;
       return remembered(standing, stamp, () => view(standing, store, away_m, rule));
     });
   },
@@ -86,6 +88,7 @@ function startStanding(): Standing {
     stood_s: 0,
     look_s: 0,
     rest: null,
+    vain: false,
     told: null,
     followed: startFollowed(),
     healthy: startBaseline(),
@@ -122,6 +125,7 @@ function follow(
   standing.look_s = 0;
   const group_K = Math.SQRT2 * unit.estimator.group_offset_sigma_K;
   const { excess, sigma, fresh, misfit } = fitRest(readings, { group_K, noise_K: NOISE_K });
+  standing.vain = true;
   if (!Number.isFinite(sigma) || misfit > MISFIT_MOST) return;
   const worse = Math.sqrt(Math.max(1, misfit));
   const now = {
@@ -130,18 +134,32 @@ function follow(
     whole: Math.hypot(sigma * worse, MODEL_LOSS),
   };
   if (now.whole > USELESS) return;
+  standing.vain = false;
   test(standing, now, rule, watching, time_ms);
   standing.told = now;
 }
 
-function healthyOf({ healthy }: Standing): { value: number; sigma: number; learned: boolean } {
+interface Healthy {
+  /** Loss, and its sigma, in configured losses; what one healthy loss is. */
+  readonly value: number;
+  readonly sigma: number;
+  readonly one: number;
+  readonly learned: boolean;
+}
+
+/**
+ * What a healthy store loses. What the model makes wrong alike in all rests adds to it, so that an
+ * excess is the difference, in losses of at least what the configuration allows.
+ */
+function healthyOf({ healthy }: Standing): Healthy {
   const learned = baseline(healthy, RULE);
   if (learned === null || learned.sigma > PRIOR_SIGMA)
-    return { value: 1, sigma: PRIOR_SIGMA, learned: false };
-  const most = Math.exp(2 * PRIOR_SIGMA);
+    return { value: 1, sigma: Math.exp(PRIOR_SIGMA) - 1, one: 1, learned: false };
+  const value = Math.min(learned.value, Math.exp(2 * PRIOR_SIGMA));
   return {
-    value: Math.min(Math.max(learned.value, 1 / most), most),
+    value,
     sigma: learned.sigma,
+    one: Math.max(value, Math.exp(-PRIOR_SIGMA)),
     learned: true,
   };
 }
@@ -156,18 +174,18 @@ function test(
 ): void {
   const { told, followed } = standing;
   const known = healthyOf(standing);
-  const spread = known.learned ? known.sigma / known.value : Math.exp(known.sigma) - 1;
+  const over = (loss: number): number => 1 + (loss - known.value) / known.one;
   // Against rests of its own, what the model makes wrong in all of them alike drops out.
   const own = (one: Told) => ({ value: one.value, sigma: known.learned ? one.sigma : one.whole });
-  followed.value = now.value / known.value;
-  followed.sigma = Math.hypot(own(now).sigma / known.value, followed.value * spread);
+  followed.value = over(now.value);
+  followed.sigma = Math.hypot(own(now).sigma, known.sigma) / known.one;
   followed.time_ms = time_ms;
   followed.decision = decisionAt(in_control_d, LEAST_S);
   const news = told === null ? own(now) : newInformation(own(told), own(now), 0);
   if (news === null) return;
-  const healthy = 1 + 2 * spread;
-  const value = news.value / known.value;
-  const sigma = news.sigma / known.value;
+  const healthy = 1 + (2 * known.sigma) / known.one;
+  const value = over(news.value);
+  const sigma = news.sigma / known.one;
   const degraded = healthy + rule.limit - 1;
   stepSequential(followed.test, { value, sigma, healthy, degraded }, followed.decision);
 }
@@ -196,7 +214,8 @@ function view(
   const { followed } = standing;
   let reason: IndicatorReason | null = null;
   if (away_m > REACH_M) reason = 'not_instrumented';
-  else if (followed.sigma !== null && followed.sigma > rule.limit - 1) reason = 'too_uncertain';
+  else if (followed.sigma === null ? standing.vain : followed.sigma > rule.limit - 1)
+    reason = 'too_uncertain';
   return shownAs({
     kind: 'standing_loss',
     subject: store.id,
@@ -223,6 +242,11 @@ function sentence(
       `Store ${store}: what is lost through the wall cannot be told: the outermost string hangs ` +
       `${away_m.toFixed(1)} m from it, and heat comes no further than ${REACH_M} m in a day or two. ` +
       'A string nearer to the wall would show it.'
+    );
+  if ((value === null || sigma === null) && reason === 'too_uncertain')
+    return (
+      `Store ${store}: what it loses while standing cannot be told from the rests so far: it moves the ` +
+      'thermocouples near wall and ends by less than cards swing. A longer rest of a full store tells more.'
     );
   if (value === null || sigma === null)
     return `Store ${store}: losses show after ${LEAST_S / MEAN_S} h of standing at a stretch or more.`;

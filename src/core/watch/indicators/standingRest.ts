@@ -123,7 +123,10 @@ function changes(model: StoreModel, first: Hour, now: Hour): RestReading[] {
         mantle_K: moved('mantle') - own,
         ends_K: moved('ends') - own,
         conductivity_K: (moved('conductivity') - own) / Math.log(CONDUCTIVITY_STEP),
-        slope_K_m: now.rock.as_configured.slope_K_m[i] as number,
+        slope_K_m: first.rock.as_configured.slope_K_m[i] as number,
+        bent_K_m:
+          (now.rock.as_configured.slope_K_m[i] as number) -
+          (first.rock.as_configured.slope_K_m[i] as number),
         moved_K: own,
         string: k,
         group,

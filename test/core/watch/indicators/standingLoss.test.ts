@@ -146,7 +146,7 @@ describe('fit of a rest', () => {
         excess * (mantle_K + ends_K) + way_m * slope_K_m + swing_K * (string - 1) + 0.05 * z();
       const conductivity_K = 0.5 * mantle_K;
       return {
-        ...{ off_K, mantle_K, ends_K, conductivity_K, slope_K_m, moved_K: mantle_K },
+        ...{ off_K, mantle_K, ends_K, conductivity_K, slope_K_m, bent_K_m: 0, moved_K: mantle_K },
         ...{ string, group: `card ${string}` },
       };
     });
