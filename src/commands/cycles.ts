@@ -10,7 +10,7 @@ import { loadUnit } from './site.js';
 import { parsePoint_ms } from './values.js';
 import { tellCounts, walkRecording } from './walk.js';
 
-interface CyclesOptions {
+export interface CyclesOptions {
   readonly config?: string;
   readonly recording?: string;
   readonly url?: string;
@@ -31,7 +31,8 @@ interface Cycles {
 
 const KINDS: readonly Mode[] = ['charge', 'stand', 'discharge'];
 
-function checkOptions({ url, config, recording, kind }: CyclesOptions): void {
+/** @throws RockhourError USAGE where options do not go together */
+export function checkCyclesOptions({ url, config, recording, kind }: CyclesOptions): void {
   if (url !== undefined && (recording ?? config) !== undefined) {
     throw new RockhourError(
       'USAGE',
@@ -77,7 +78,7 @@ async function fromRecording(options: CyclesOptions): Promise<Cycles> {
 }
 
 async function cycles(options: CyclesOptions): Promise<void> {
-  checkOptions(options);
+  checkCyclesOptions(options);
   const { from, to, kind } = options;
   const answer =
     options.url === undefined
