@@ -8,7 +8,7 @@ import { type AlarmInput, type AlarmTransition, stepAlarm } from '../../core/ala
 import type { Mode } from '../../core/definitions.js';
 import type { EventKind, WatchEvent } from '../../core/watch/event.js';
 import { KIND_CLASSES } from '../../core/watch/kinds.js';
-import type { Database } from './database.js';
+import { type Database, storeFailure } from './database.js';
 
 /** What the configuration says of alarms. */
 export interface AlarmRules {
@@ -109,6 +109,7 @@ export class Alarms {
   /**
    * Follows a person's word. It is on the disk when this returns: a power cut may not undo it.
    * @returns why it was refused, null where it was followed or changes nothing (acknowledged already)
+   * @throws RockhourError STORE_FAILED where the disk does not take it; nothing has changed then
    */
   command(command: AlarmCommand, now_ms: number): string | null {
     const id = readId(command.id);
@@ -129,6 +130,8 @@ export class Alarms {
     try {
       const moved = row;
       this.database.transaction(() => this.store(moved, step.state, step.transition))();
+    } catch (thrown) {
+      throw storeFailure(`recording what ${command.who} did to ${command.id}`, thrown);
     } finally {
       this.database.pragma('synchronous = NORMAL');
     }

@@ -107,6 +107,19 @@ describe('alarms in the history', () => {
     expect(say('return_to_service', 'u/front_spread/hot', T)).toBe('it is not out of service');
   });
 
+  it('do not change by a word that the disk does not take, and say so', () => {
+    const { folder, raise, say, states } = opened();
+    raise('front_spread', T);
+    const lock = new SQLite(join(folder, 'history.sqlite'));
+    lock.exec('BEGIN IMMEDIATE');
+    const word = () => say('acknowledge', 'u/front_spread/hot', T + 1);
+    expect(word).toThrow(/^recording what mara did to u\/front_spread\/hot: .*SQLITE_BUSY/);
+    expect(states()).toEqual(['u/front_spread/hot unacknowledged']);
+    lock.exec('ROLLBACK');
+    expect(word()).toBeNull();
+    lock.close();
+  });
+
   it('acknowledged twice keep the first name, and no second transition', () => {
     const { alarms, raise, walked } = opened();
     raise('front_spread', T);

@@ -6,6 +6,7 @@ import {
   transitionsSchema,
 } from '../../../src/adapters/http/schema/alarms.js';
 import { ALARM_TEXTS } from '../../../src/core/watch/alarmTexts.js';
+import { RockhourError } from '../../../src/errors.js';
 import { testApp } from './httpApp.js';
 
 type App = Awaited<ReturnType<typeof testApp>>;
@@ -94,6 +95,17 @@ describe('alarms over HTTP', () => {
     expect(answer).toMatchObject({
       status: 404,
       body: { error: { code: 'unknown_event', field: 'id', expected: `one of ${id}` } },
+    });
+  });
+
+  it('say that nothing was recorded where the disk does not take it', async () => {
+    const { id, post, plant } = await alarmed();
+    plant.commandAlarm = () => {
+      throw new RockhourError('STORE_FAILED', 'the disk is full');
+    };
+    expect(await post('acknowledge', { id, who: 'a' })).toMatchObject({
+      status: 503,
+      body: { error: { code: 'question_failed', message: 'not recorded: the disk is full' } },
     });
   });
 

@@ -1,4 +1,5 @@
 import type { AlarmAction } from '../../../core/alarm/command.js';
+import { RockhourError } from '../../../errors.js';
 import { HttpFault, show } from '../faults.js';
 import { checkUnit, faults, type Routes } from '../routes.js';
 import {
@@ -36,7 +37,7 @@ type Accepted = Extract<AlarmAnswer, { accepted: true }>;
 
 /** @throws HttpFault where the command is not followed */
 function follow(service: PlantService, action: AlarmAction, body: object): Accepted {
-  const answer = service.commandAlarm({ ...body, action });
+  const answer = commandOf(service, { ...body, action });
   if (answer.accepted) return answer;
   const { code, field, value, expected } = answer.fault;
   const words =
@@ -45,6 +46,18 @@ function follow(service: PlantService, action: AlarmAction, body: object): Accep
       : `${field ?? 'the body'} is ${show(value)}; expected ${expected}`;
   const detail = { ...(field === null ? {} : { field }), value, expected };
   throw new HttpFault(STATUS[code], code, words, detail);
+}
+
+/** @throws HttpFault 503 where the disk does not take it: nothing has changed, it may be tried again */
+function commandOf(service: PlantService, command: object): AlarmAnswer {
+  try {
+    return service.commandAlarm(command);
+  } catch (thrown) {
+    if (!(thrown instanceof RockhourError)) throw thrown;
+    const fault = new HttpFault(503, 'question_failed', `not recorded: ${thrown.message}`);
+    fault.cause = thrown;
+    throw fault;
+  }
 }
 
 function commanded({ command: { id, action, who }, entry }: Accepted) {
