@@ -1,6 +1,7 @@
 import { createBedWork, stepBed } from '../../bed/kernel.js';
 import { temperatureAt } from '../../bed/tables.js';
 import type { StoreEnd } from '../../definitions.js';
+import type { SensorVerdict } from '../../estimate.js';
 import type { StoreModel, StoreState } from '../../track/storeTracker.js';
 import type {
   Indicator,
@@ -38,6 +39,17 @@ const HANGS = 0.6;
 /** A topmost thermocouple deeper than this tells of the bed's level late, if at all [m]. */
 const DEEP_M = 0.3;
 
+/** Readings of these tell of no place at all; `offset` and `drifting` are what hanging in gas is taken for. */
+const NO_PLACE: readonly (SensorVerdict | null)[] = [
+  'open',
+  'burst',
+  'stuck',
+  'reversed',
+  'swapped',
+  'wrong_type',
+  'outlier',
+];
+
 interface Top {
   readonly tube: number;
   readonly sensor: number;
@@ -45,6 +57,7 @@ interface Top {
   readonly first: boolean;
   readonly followed: Followed;
   sum_K: number;
+  count: number;
   /** Reading, gas and rock that changes are counted from [K]; null = none. */
   from: {
     readonly stood_s: number;
@@ -129,6 +142,7 @@ function startLevel(model: StoreModel): Level {
           first: i === 0,
           followed: startFollowed(),
           sum_K: 0,
+          count: 0,
           from: null,
         }),
       ),
@@ -169,8 +183,12 @@ function follow(
   if (Number.isFinite(read)) {
     level.scans++;
     level.gas_K += read;
-    for (const top of level.tops)
-      top.sum_K += scan.values[model.channels[top.tube]?.[top.sensor] as number] as number;
+    for (const top of level.tops) {
+      const own = readingOf(model, store, scan.values, top);
+      if (!Number.isFinite(own)) continue;
+      top.sum_K += own;
+      top.count++;
+    }
   }
   if (level.mean_s < MEAN_S) return;
   standTubes(level.beds, model, conditions.ambient_K, level.mean_s);
@@ -178,7 +196,19 @@ function follow(
   level.mean_s = 0;
   level.scans = 0;
   level.gas_K = 0;
-  for (const top of level.tops) top.sum_K = 0;
+  for (const top of level.tops) Object.assign(top, { sum_K: 0, count: 0 });
+}
+
+/** Reading of a thermocouple [K]; NaN where there is none, or it is no temperature of where it hangs. */
+function readingOf(
+  model: StoreModel,
+  state: StoreState,
+  values: Float64Array,
+  { tube, sensor }: Pick<Top, 'tube' | 'sensor'>,
+): number {
+  const verdict = state.sensors[tube]?.[sensor]?.verdict ?? null;
+  if (NO_PLACE.includes(verdict)) return Number.NaN;
+  return values[model.channels[tube]?.[sensor] as number] as number;
 }
 
 /** Gas that begins to enter at the top. */
@@ -194,9 +224,7 @@ function enter(
   const atTop = conditions.flow_kg_s > 0 === (model.store.charge_inlet_at === 'top');
   const leaps = followEntry(level.entry, model, store, level.tops, {
     gas_K,
-    read_K: level.tops.map(
-      ({ tube, sensor }) => scan.values[model.channels[tube]?.[sensor] as number] as number,
-    ),
+    read_K: level.tops.map((top) => readingOf(model, store, scan.values, top)),
     massFlux_kg_m2s: atTop ? conditions.flow_kg_s / model.store.bed.area_m2 : 0,
     ambient_K: conditions.ambient_K,
     dt_s,
@@ -212,8 +240,7 @@ function enter(
 function restart(level: Level): void {
   Object.assign(level, noRest());
   for (const top of level.tops) {
-    top.sum_K = 0;
-    top.from = null;
+    Object.assign(top, { sum_K: 0, count: 0, from: null });
   }
 }
 
@@ -227,7 +254,7 @@ function compare(
   for (const top of level.tops) {
     const now = {
       stood_s: level.stood_s,
-      read_K: top.sum_K / level.scans,
+      read_K: top.sum_K / top.count,
       gas_K,
       rock_K: rockAt(level.beds as Float64Array[], model, top),
     };

@@ -35,6 +35,7 @@ export interface Entry {
   scans: number;
   gasSum_K: number;
   readonly readSum_K: number[];
+  readonly readCount: number[];
   /** Tubes moved on by the model alone since then, and their rock at the places at first [K]. */
   beds: Float64Array[] | null;
   rock_K: number[];
@@ -48,6 +49,7 @@ export function startEntry(places: readonly Place[]): Entry {
     scans: 0,
     gasSum_K: 0,
     readSum_K: places.map(() => 0),
+    readCount: places.map(() => 0),
     beds: null,
     rock_K: [],
   };
@@ -101,7 +103,9 @@ export function followEntry(
     entry.scans++;
     entry.gasSum_K += scan.gas_K;
     scan.read_K.forEach((read, i) => {
+      if (!Number.isFinite(read)) return;
       entry.readSum_K[i] = (entry.readSum_K[i] as number) + read;
+      entry.readCount[i] = (entry.readCount[i] as number) + 1;
     });
   }
   if (entry.since_s < TO_S || entry.scans === 0) return [];
@@ -121,6 +125,7 @@ function calm(entry: Entry, { gas_K, read_K, dt_s }: EntryScan): void {
   entry.scans = 0;
   entry.gasSum_K = 0;
   entry.readSum_K.fill(0);
+  entry.readCount.fill(0);
   entry.beds = null;
   entry.rock_K = [];
 }
@@ -170,7 +175,8 @@ function leapAt(
   lag_m: Float64Array,
 ): Leap | null {
   const leap = entry.gasSum_K / entry.scans - entry.gas_K;
-  const moved = (entry.readSum_K[i] as number) / entry.scans - (entry.read_K[i] as number);
+  const moved =
+    (entry.readSum_K[i] as number) / (entry.readCount[i] as number) - (entry.read_K[i] as number);
   if (!(Math.abs(leap) >= LEAP_K) || !Number.isFinite(moved)) return null;
   const tube = model.tubes[place.tube] as TubeModel;
   const { length_m } = model.store.bed;
