@@ -140,7 +140,7 @@ export function stepCycleLog(
     state.open.end = edge;
     state.beside = startStretch(edge);
   }
-  if (scan.modeRead) weigh(state, scan.mode, Math.min(dt_s, rules.scan_s));
+  if (scan.modeRead) weigh(rules, state, scan.mode, dt_s);
   const own = state.beside ?? state.open;
   count(state, own, now, dt_s / 7200);
   addScan(own, scan, ends);
@@ -208,9 +208,12 @@ function noteSilence(
   return silent;
 }
 
-function weigh(state: CycleLogState, mode: Mode, span_s: number): void {
+function weigh(rules: CycleRules, state: CycleLogState, mode: Mode, dt_s: number): void {
+  const span_s = Math.min(dt_s, rules.scan_s);
+  // Never enough for a run by two scans, however far apart: one flicker may follow a hole, and one more.
+  const running_s = Math.min(dt_s, rules.confirm_s / CONFIRM_SCANS);
   for (const way of ['charge', 'discharge'] as const) {
-    const sum = state.running_s[way] + (mode === way ? span_s : -span_s);
+    const sum = state.running_s[way] + (mode === way ? running_s : -running_s);
     state.running_s[way] = way === state.mode ? 0 : Math.max(0, sum);
   }
   if (mode !== state.mode) {
