@@ -24,6 +24,8 @@ export interface Moment {
   /** ln phi_h of a store; ln of a string's flow over the metered; 0 where not named. */
   readonly transfer?: Readonly<Record<string, number>>;
   readonly flow?: Readonly<Record<string, number>>;
+  /** Offset of the gas thermometer at the charge inlet, as the tubes have it [K]. */
+  readonly inlet_K?: Readonly<Record<string, number>>;
   readonly front?: boolean;
   readonly flowKnown?: boolean;
   readonly step?: 'updated' | 'reacquired' | 'missed';
@@ -141,6 +143,7 @@ export function watchScript<S>(
         const { further, covariance } = own;
         further[layout.flow - layout.cells] = own.flow.value;
         further[layout.transfer - layout.cells] = own.transfer.value;
+        further[layout.inlet.charge_inlet - layout.cells] = moment.inlet_K?.[id] ?? 0;
         covariance[layout.flow * (layout.size + 1)] = own.flow.variance;
         covariance[layout.transfer * (layout.size + 1)] = own.transfer.variance;
         return { further, covariance, surprise: 1 };

@@ -75,6 +75,16 @@ describe('heat transfer', () => {
     }
   });
 
+  it('takes nothing of a time in which the filter moved the offset of a gas thermometer', () => {
+    const course = (moved_K: number) => (hour: number) => ({
+      // Bent for five hours while the offset comes to what the thermometer is off by.
+      transfer: { hot: hour >= 48 && hour < 53 ? -1.2 : 0 },
+      inlet_K: { hot: moved_K * Math.min(1, Math.max(0, (hour - 48) / 5)) },
+    });
+    expect(watchScript(HEAT_TRANSFER, 72, course(15)).found).toEqual({});
+    expect(Object.keys(watchScript(HEAT_TRANSFER, 72, course(5)).found)).toEqual(['hot']);
+  });
+
   it('says that it is learning, and from when what is healthy stems', () => {
     const seen: string[] = [];
     const { of } = watchScript(HEAT_TRANSFER, 60, () => ({}), {
