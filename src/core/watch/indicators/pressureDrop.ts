@@ -11,7 +11,8 @@ import type {
   IndicatorView,
 } from '../indicator.js';
 import { decisionAt, stepSequential } from '../sequential.js';
-import { type Followed, remembered, shownAs, stampOf, startFollowed, withSigma } from './shown.js';
+import { dropSentence } from './pressureDropWords.js';
+import { type Followed, remembered, shownAs, stampOf, startFollowed } from './shown.js';
 
 /** Readings are averaged over this time of even flow, and so many of these make one value [s]. */
 const BLOCK_S = 600;
@@ -245,7 +246,7 @@ function view(
     healthy: channel < 0 ? null : 1,
     healthy_from: known.learned ? 'learned' : 'configured',
     reason: channel < 0 ? 'not_instrumented' : drop.healthy.kept ? null : 'learning',
-    sentence: sentence(store.id, followed, drop.healthy, channel, known.learned, only, rule),
+    sentence: dropSentence(store.id, followed, drop.healthy, channel, known.learned, only, rule),
   });
   return { ...shown, only_while_cold: only };
 }
@@ -270,33 +271,4 @@ function onlyWhileCold({ cold, warm }: Drop, healthy: number, rule: IndicatorRul
   const half = 1 + (rule.limit - 1) / 2;
   if (warm.sum / warm.weight / healthy > half) return false;
   return cold.weight >= 1 && cold.sum / cold.weight / healthy > half ? true : null;
-}
-
-function sentence(
-  store: string,
-  followed: Followed,
-  healthy: BaselineState,
-  channel: number,
-  learned: boolean,
-  only: boolean | null,
-  rule: IndicatorRule,
-): string {
-  if (channel < 0)
-    return `Store ${store}: no pressure drop is measured, so dust and frost do not show in it.`;
-  const { value, sigma, test } = followed;
-  if (value === null || sigma === null)
-    return `Store ${store}: its pressure drop is known after an hour of even flow.`;
-  const against = learned ? 'its healthy one' : 'the configured law';
-  const ratio = `${withSigma(value, sigma, 2)} times ${against} at the same flow and temperatures (limit ${rule.limit})`;
-  if (!test.degraded) {
-    const note = healthy.kept ? '' : ' What is healthy is still being learned.';
-    return `Store ${store}: pressure drop ${ratio}.${note}`;
-  }
-  const when =
-    only === true
-      ? ' Only while rock is below freezing; it is gone when the bed is warm.'
-      : only === false
-        ? ' Also while no rock is below freezing.'
-        : ' So far the bed was never free of rock below freezing, so frost and dust cannot be told apart by it.';
-  return `Store ${store}: pressure drop ${ratio}: the bed lets less gas through.${when}`;
 }

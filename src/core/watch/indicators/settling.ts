@@ -1,27 +1,17 @@
 import { createBedWork, stepBed } from '../../bed/kernel.js';
 import { temperatureAt } from '../../bed/tables.js';
-import type { StoreEnd } from '../../definitions.js';
 import type { SensorVerdict } from '../../estimate.js';
 import type { StoreModel, StoreState } from '../../track/storeTracker.js';
-import type {
-  Indicator,
-  IndicatorInput,
-  IndicatorReason,
-  IndicatorRule,
-  IndicatorsDefinition,
-  IndicatorView,
-} from '../indicator.js';
+import type { Indicator, IndicatorInput, IndicatorsDefinition } from '../indicator.js';
 import { decisionAt, type SequentialValue, stepSequential } from '../sequential.js';
-import { type Entry, followEntry, startEntry, UNCOVERED } from './settlingEntry.js';
-import { type Followed, remembered, shownAs, stampOf, startFollowed } from './shown.js';
+import { followEntry, UNCOVERED } from './settlingEntry.js';
+import { type Level, restart, startLevel, type Top, topEnd } from './settlingLevel.js';
+import { APART_K, settlingView } from './settlingView.js';
+import { remembered, stampOf } from './shown.js';
 
-/** So many of the topmost thermocouples of each string are tested. */
-const TESTED = 2;
 /** Junctions and gas settle first; then means over this long are compared [s]. */
 const SETTLE_S = 600;
 const MEAN_S = 600;
-/** Gas and rock must have moved apart by this, or a reading tells nothing of which it follows [K]. */
-const APART_K = 5;
 /**
  * One sigma of how far a reading's change is from that of gas or rock: thermowells of up to 3 min while
  * the gas cools by 0.2 K a minute, noise, what the model makes wrong of rock near the lid [K].
@@ -34,10 +24,6 @@ const PAIR_S = 5400;
 /** Share of the gas's movement that a covered junction just below the surface may show. */
 const COVERED = 0.2;
 const SHARE_SIGMA = 0.15;
-/** Where the bed has sunk as a whole, a thermocouple that last showed more of the gas than this hangs in it. */
-const HANGS = 0.6;
-/** A topmost thermocouple deeper than this tells of the bed's level late, if at all [m]. */
-const DEEP_M = 0.3;
 
 /** Readings of these tell of no place at all; `offset` and `drifting` are what hanging in gas is taken for. */
 const NO_PLACE: readonly (SensorVerdict | null)[] = [
@@ -49,36 +35,6 @@ const NO_PLACE: readonly (SensorVerdict | null)[] = [
   'wrong_type',
   'outlier',
 ];
-
-interface Top {
-  readonly tube: number;
-  readonly sensor: number;
-  /** The topmost of its string. */
-  readonly first: boolean;
-  readonly followed: Followed;
-  sum_K: number;
-  count: number;
-  /** Reading, gas and rock that changes are counted from [K]; null = none. */
-  from: {
-    readonly stood_s: number;
-    readonly read_K: number;
-    readonly gas_K: number;
-    readonly rock_K: number;
-  } | null;
-}
-
-interface Level {
-  stood_s: number;
-  mean_s: number;
-  scans: number;
-  gas_K: number;
-  /** Tubes as they were when the rest began, marched on by themselves [J/m3]. */
-  beds: Float64Array[] | null;
-  readonly tops: Top[];
-  /** Test of all topmost thermocouples together: a bed mostly sinks as a whole. */
-  readonly whole: Followed;
-  readonly entry: Entry;
-}
 
 export interface SettlingState {
   readonly stores: Level[];
@@ -107,56 +63,14 @@ export const SETTLING: Indicator<SettlingState> = {
       const bare = own.sensors.flat().filter(({ verdict }) => verdict === 'uncovered').length;
       const tests = level.tops.map(({ followed }) => followed.test.count).join();
       const stamp = `${stampOf(level.whole)} ${tests} ${bare} ${rule.limit}`;
-      return remembered(level, stamp, () => view(level, store, own, gas, rule));
+      return remembered(level, stamp, () => settlingView(level, store, own, gas, rule));
     });
   },
 };
 
-const topEnd = ({ store }: StoreModel): StoreEnd =>
-  store.charge_inlet_at === 'top' ? 'charge_inlet' : 'discharge_inlet';
-
 /** Channel of the gas above the bed, -1 = none. */
 const gasAbove = (store: StoreModel, { model }: IndicatorInput): number =>
   model.map.gas[store.store.id]?.[topEnd(store)] ?? -1;
-
-/** Depth of a position below the bed's top [m]. */
-const depthOf = ({ store }: StoreModel, position_m: number): number =>
-  store.charge_inlet_at === 'top' ? position_m : store.bed.length_m - position_m;
-
-/** Sensors of a string from the top down, with their depths. */
-function fromTop(model: StoreModel, k: number): { sensor: number; depth_m: number }[] {
-  const { string } = model.tubes[k] as StoreModel['tubes'][number];
-  return string.thermocouples
-    .map(({ position_m }, sensor) => ({ sensor, depth_m: depthOf(model, position_m) }))
-    .sort((a, b) => a.depth_m - b.depth_m);
-}
-
-function startLevel(model: StoreModel): Level {
-  const tops = model.tubes.flatMap((_, tube) =>
-    fromTop(model, tube)
-      .slice(0, TESTED)
-      .map(
-        ({ sensor }, i): Top => ({
-          tube,
-          sensor,
-          first: i === 0,
-          followed: startFollowed(),
-          sum_K: 0,
-          count: 0,
-          from: null,
-        }),
-      ),
-  );
-  return { ...noRest(), tops, whole: startFollowed(), entry: startEntry(tops) };
-}
-
-const noRest = (): Omit<Level, 'tops' | 'whole' | 'entry'> => ({
-  stood_s: 0,
-  mean_s: 0,
-  scans: 0,
-  gas_K: 0,
-  beds: null,
-});
 
 function follow(
   level: Level,
@@ -237,13 +151,6 @@ function enter(
   });
 }
 
-function restart(level: Level): void {
-  Object.assign(level, noRest());
-  for (const top of level.tops) {
-    Object.assign(top, { sum_K: 0, count: 0, from: null });
-  }
-}
-
 function compare(
   level: Level,
   model: StoreModel,
@@ -314,107 +221,4 @@ function rockAt(beds: readonly Float64Array[], model: StoreModel, { tube, sensor
   const share = (string.thermocouples[sensor]?.position_m ?? 0) / model.store.bed.length_m;
   const cell = Math.min(layout.cells - 1, Math.max(0, Math.floor(share * layout.cells)));
   return temperatureAt(model.tables, (beds[tube] as Float64Array)[cell] as number);
-}
-
-interface Found {
-  /** Deepest uncovered thermocouple and the next one below it [m]; null: none is uncovered. */
-  readonly least_m: number | null;
-  readonly most_m: number;
-  readonly ids: string[];
-  /** Topmost thermocouple of the store [m]. */
-  readonly top_m: number;
-  /** The test that is furthest on. */
-  readonly followed: Followed;
-}
-
-function found(level: Level, model: StoreModel, state: StoreState): Found {
-  let least: number | null = null;
-  let most = model.store.bed.length_m;
-  let topmost = model.store.bed.length_m;
-  const ids: string[] = [];
-  const { whole } = level;
-  let followed = whole;
-  const further = (a: Followed, b: Followed) =>
-    Number(a.test.degraded) - Number(b.test.degraded) || a.test.up - b.test.up;
-  const hangs = ({ first, followed: own }: Top): boolean =>
-    own.test.degraded || (first && whole.test.degraded && (own.value ?? 0) > HANGS);
-  model.tubes.forEach(({ string }, k) => {
-    const places = fromTop(model, k);
-    let deepest = -1;
-    places.forEach(({ sensor, depth_m }, i) => {
-      topmost = Math.min(topmost, depth_m);
-      const top = level.tops.find((t) => t.tube === k && t.sensor === sensor);
-      const judged = state.sensors[k]?.[sensor]?.verdict === 'uncovered';
-      if (top !== undefined && further(top.followed, followed) > 0) followed = top.followed;
-      if (!judged && (top === undefined || !hangs(top))) return;
-      deepest = i;
-      ids.push(string.thermocouples[sensor]?.id ?? '');
-    });
-    if (deepest < 0) return;
-    const { depth_m } = places[deepest] as { depth_m: number };
-    if (least !== null && depth_m <= least) return;
-    least = depth_m;
-    most = places[deepest + 1]?.depth_m ?? model.store.bed.length_m;
-  });
-  return { least_m: least, most_m: most, ids, top_m: topmost, followed };
-}
-
-function view(
-  level: Level,
-  model: StoreModel,
-  state: StoreState,
-  gas: number,
-  rule: IndicatorRule,
-): IndicatorView {
-  const now = found(level, model, state);
-  const sunk = now.least_m;
-  let reason: IndicatorReason | null = null;
-  if (gas < 0 || now.top_m > DEEP_M) reason = 'not_instrumented';
-  const shown = shownAs({
-    kind: 'settling',
-    subject: model.store.id,
-    unit: 'm',
-    rule,
-    followed: now.followed,
-    healthy: 0,
-    healthy_from: 'law',
-    reason,
-    // Less than down to the topmost thermocouple is not seen.
-    limit: Math.max(rule.limit, now.top_m),
-    sentence: sentence(model.store.id, now, gas, rule),
-  });
-  const tested = now.followed.test.count > 0;
-  return {
-    ...shown,
-    state: sunk !== null ? 'degraded' : shown.state,
-    reason: sunk !== null ? null : shown.reason,
-    score: sunk !== null ? 1 : shown.score,
-    value: sunk ?? (tested ? 0 : null),
-    sigma:
-      sunk === null
-        ? tested
-          ? now.top_m / Math.sqrt(12)
-          : null
-        : (now.most_m - sunk) / Math.sqrt(12),
-  };
-}
-
-function sentence(store: string, now: Found, gas: number, rule: IndicatorRule): string {
-  const { least_m, most_m, ids, top_m, followed } = now;
-  if (least_m !== null)
-    return (
-      `Store ${store}: ${ids.join(', ')} hang${ids.length > 1 ? '' : 's'} in gas, no longer in rock: the bed has ` +
-      `sunk by ${least_m.toFixed(2)} to ${most_m.toFixed(2)} m there.`
-    );
-  const deep =
-    top_m > rule.limit
-      ? ` Its topmost thermocouple hangs ${top_m.toFixed(2)} m below the top of the bed: less is not seen.`
-      : '';
-  if (gas < 0)
-    return `Store ${store}: the gas above the bed is not measured, so a sunken bed shows late or not at all.`;
-  if (top_m > DEEP_M)
-    return `Store ${store}: no thermocouple is close to the top of the bed.${deep}`;
-  if (followed.test.count === 0)
-    return `Store ${store}: gas above the bed and rock have not moved apart by ${APART_K} K while standing, so where the topmost thermocouples hang is not known.${deep}`;
-  return `Store ${store}: its topmost thermocouples are in rock.${deep}`;
 }

@@ -124,8 +124,10 @@ function take(
   valve.since_s = 0;
   const news = newInformation(before, now, walk);
   for (const followed of [valve.charging, valve.discharging]) {
-    followed.value = Math.abs(now.value);
-    followed.sigma = Math.hypot(now.sigma, MODEL_SHARE);
+    // What has passed of late: the filter itself still remembers the valve as it was in earlier rests.
+    const { value, sigma } = news ?? now;
+    followed.value = Math.abs(value);
+    followed.sigma = Math.hypot(sigma, MODEL_SHARE);
     followed.time_ms = time_ms;
     followed.decision = decisionAt(in_control_d, EVERY_S);
   }
