@@ -112,7 +112,7 @@ describe.skipIf(!mosquitto)('a running daemon', () => {
     const { first, heard, end } = await listen(broker.url);
     const topics = ['rockhour/heartbeat', 'rockhour/vellmoor/alarms'];
     topics.push('rockhour/vellmoor/dispatch', 'rockhour/vellmoor/headroom');
-    topics.push('rockhour/vellmoor/state');
+    topics.push('rockhour/vellmoor/state', 'rockhour/vellmoor/watch');
     // What it can still take comes from the worker, some seconds after the first full hours.
     await waitFor('all topics', () => topics.every((topic) => heard.has(topic)), 20_000);
     expect([...heard.keys()].sort()).toEqual(topics);
@@ -217,6 +217,8 @@ describe.skipIf(!mosquitto)('a running daemon', () => {
       '/api/units/{unit}/offers/history/{no}': [''],
       '/api/units/{unit}/offers/report': [''],
       '/api/units/{unit}/history': ['', '?points=5', '?series=state_of_charge', '?format=csv'],
+      '/api/units/{unit}/watch': [''],
+      '/api/units/{unit}/cycles': [''],
       '/api/alarms': ['', '?unit=vellmoor'],
       '/api/events': ['', '?unit=vellmoor&most=3'],
       '/api/alarms/transitions': ['', '?unit=vellmoor&most=3'],

@@ -24,6 +24,11 @@ export const indicatorSchema = z.object({
   reason: z.enum(INDICATOR_REASONS).nullable().describe('Why it is undetermined'),
   time: timeSchema.nullable(),
   sentence: z.string(),
+  only_while_cold: z
+    .boolean()
+    .nullable()
+    .optional()
+    .describe('Of pressure_drop: too high only while the bed is below freezing; null: not known'),
 });
 
 const causeSchema = z.object({
