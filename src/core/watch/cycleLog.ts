@@ -1,14 +1,9 @@
-import type { Direction, Mode, UnitDefinition } from '../definitions.js';
+import type { Mode } from '../definitions.js';
 import type { CycleRules, CycleScan } from './cycle/cycleScan.js';
 import { between, type Ends, endsOf } from './cycle/ends.js';
-import {
-  addMoment,
-  type Moments,
-  type RoundTrip,
-  roundTrip,
-  setEdge,
-  startMoments,
-} from './cycle/moments.js';
+import { decided, weigh } from './cycle/evidence.js';
+import { type CycleLogState, startCycleLog } from './cycle/logState.js';
+import { addMoment, type RoundTrip, roundTrip, setEdge, startMoments } from './cycle/moments.js';
 import { recordOf } from './cycle/record.js';
 import {
   addRates,
@@ -22,70 +17,10 @@ import {
 import type { CycleRecord } from './cycleRecord.js';
 import type { IndicatorView } from './indicator.js';
 
-/** Shortest standing that is a stand of its own: below a trading block, above a change-over [s]. */
-const PAUSE_S = 600;
-/** Running that begins a run: so long and so many scans, as no flicker of a mode is. */
-const CONFIRM_S = 120;
-const CONFIRM_SCANS = 2.5;
-/** So many scans without a reading leave a run complete. */
-const GAP_SCANS = 5;
-/** A scan of what the run does takes back so much of what spoke against it. */
-const TAKEN_BACK = 2;
+export { type CycleLogState, cycleRules, startCycleLog } from './cycle/logState.js';
+
 /** After so long without any reading nothing is known of what was: the log begins anew [ms]. */
 const FORGET_MS = 24 * 3600 * 1000;
-
-/** What the cycle log remembers of a unit. Plain and bounded. */
-export interface CycleLogState {
-  /** Number of the last record. */
-  no: number;
-  mode: Mode;
-  begunBefore: boolean;
-  /** The run that is under way; null before every store has started. */
-  open: Stretch | null;
-  /** What followed it, as long as it may be a pause or a flicker. */
-  beside: Stretch | null;
-  /** Evidence that the run is over, and that one in a direction has begun [s]. */
-  against_s: number;
-  readonly running_s: Record<Direction, number>;
-  last: Ends | null;
-  rates: Rates | null;
-  /** Time since power was read [s]. */
-  power_age_s: number;
-  /** The unit at the last scan with any reading, and the time of the last one with a thermocouple [ms]. */
-  seen: Ends | null;
-  bed_ms: number | null;
-  /** Sums over all time since the moments began [MWh_el]. */
-  drawn_MWh: number;
-  delivered_MWh: number;
-  moments: Moments;
-}
-
-export function startCycleLog(): CycleLogState {
-  return {
-    ...{ no: 0, mode: 'stand', begunBefore: true, open: null, beside: null, against_s: 0 },
-    running_s: { charge: 0, discharge: 0 },
-    ...{ last: null, rates: null, power_age_s: 0, seen: null, bed_ms: null },
-    ...{ drawn_MWh: 0, delivered_MWh: 0, moments: startMoments() },
-  };
-}
-
-/**
- * How runs of a unit are told apart. A run is over once it has stood for 10 min, and for longer than a
- * change-over with a warm start takes, so that neither these nor a ramp end one; never for less than five
- * scans. One in a direction has begun after two minutes and three scans.
- */
-export function cycleRules(unit: UnitDefinition): CycleRules {
-  const scan_s = unit.scan_period_s;
-  const operation = unit.limits.operation;
-  const over_s = operation ? operation.change_over_s + operation.start.warm.time_s + CONFIRM_S : 0;
-  return {
-    unit: unit.id,
-    pause_s: Math.max(PAUSE_S, GAP_SCANS * scan_s, over_s),
-    confirm_s: Math.max(CONFIRM_S, CONFIRM_SCANS * scan_s),
-    gap_s: GAP_SCANS * scan_s,
-    scan_s: 2 * scan_s,
-  };
-}
 
 /**
  * One scan of the cycle log. Evidence is summed up as in a cumulative-sum test for a change: time in
@@ -100,7 +35,8 @@ export function cycleRules(unit: UnitDefinition): CycleRules {
  * scans that tell no mode are no evidence. The edge is half-way between the two scans about it.
  *
  * Electricity and heat are trapezoids between scans with readings, over empty ones too, `gap_s` at most;
- * power that alone is not read is held as long, then not counted. After a day without any reading the log begins anew.
+ * power that alone is not read is held as long, then not counted. After a day without any reading the
+ * log begins anew.
  *
  * @param state changed in place
  * @param indicators as they stand now
@@ -206,33 +142,6 @@ function noteSilence(
   if (scan.read) state.seen = own.end;
   if (scan.bedRead) state.bed_ms = time_ms;
   return silent;
-}
-
-function weigh(rules: CycleRules, state: CycleLogState, mode: Mode, dt_s: number): void {
-  const span_s = Math.min(dt_s, rules.scan_s);
-  // Never enough for a run by two scans, however far apart: one flicker may follow a hole, and one more.
-  const running_s = Math.min(dt_s, rules.confirm_s / CONFIRM_SCANS);
-  for (const way of ['charge', 'discharge'] as const) {
-    const sum = state.running_s[way] + (mode === way ? running_s : -running_s);
-    state.running_s[way] = way === state.mode ? 0 : Math.max(0, sum);
-  }
-  if (mode !== state.mode) {
-    state.against_s += span_s;
-    return;
-  }
-  state.against_s = Math.max(0, state.against_s - TAKEN_BACK * span_s);
-  if (state.against_s > 0 || state.beside === null || state.open === null) return;
-  merge(state.open, state.beside);
-  state.beside = null;
-}
-
-/** What the unit does since the run was over; null while it goes on or nothing is decided. */
-function decided(rules: CycleRules, state: CycleLogState): Mode | null {
-  if (state.beside === null) return null;
-  for (const way of ['charge', 'discharge'] as const) {
-    if (way !== state.mode && state.running_s[way] >= rules.confirm_s) return way;
-  }
-  return state.mode !== 'stand' && state.against_s >= rules.pause_s ? 'stand' : null;
 }
 
 function close(
