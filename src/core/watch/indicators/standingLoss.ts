@@ -12,6 +12,7 @@ import { decisionAt, newInformation, stepSequential } from '../sequential.js';
 import { type Followed, remembered, shownAs, stampOf, startFollowed, withSigma } from './shown.js';
 import { fitRest } from './standingFit.js';
 import { MEAN_S, type Rest, startRest, stepRest } from './standingRest.js';
+import { leakThrough } from './valveLeak.js';
 
 /** Junctions and gas settle first [s]. */
 const SETTLE_S = 1800;
@@ -34,6 +35,8 @@ const MODEL_LOSS = 0.06;
 /** A value less certain than this, in configured losses, tells nothing yet. */
 const USELESS = 0.4;
 const RULE = { floor: 0.05, enough: 0.16, least: 1 };
+/** A rest in which more than this share of the greatest flow leaks tells nothing of losses; see valveLeak. */
+const LEAKS = 0.001;
 /** Readings that move otherwise than any cause allows, by mean square over noise, tell nothing [-]. */
 const MISFIT_MOST = 9;
 
@@ -126,6 +129,9 @@ function follow(
   const group_K = Math.SQRT2 * unit.estimator.group_offset_sigma_K;
   const { excess, sigma, fresh, misfit } = fitRest(readings, { group_K, noise_K: NOISE_K });
   standing.vain = true;
+  // Gas that leaks in carries heat to the ends that no standing model has.
+  const { value: leak } = leakThrough(model, store, unit.limits.discharge.flow_max_kg_s);
+  if (Math.abs(leak) > LEAKS) return;
   if (!Number.isFinite(sigma) || misfit > MISFIT_MOST) return;
   const worse = Math.sqrt(Math.max(1, misfit));
   const now = {
@@ -246,7 +252,8 @@ function sentence(
   if ((value === null || sigma === null) && reason === 'too_uncertain')
     return (
       `Store ${store}: what it loses while standing cannot be told from the rests so far: it moves the ` +
-      'thermocouples near wall and ends by less than cards swing. A longer rest of a full store tells more.'
+      'thermocouples near wall and ends by less than cards swing, or gas leaks through it. A longer rest of ' +
+      'a full, tight store tells more.'
     );
   if (value === null || sigma === null)
     return `Store ${store}: losses show after ${LEAST_S / MEAN_S} h of standing at a stretch or more.`;
