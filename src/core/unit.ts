@@ -17,6 +17,7 @@ import { FORGET_MS, forget, takeIn } from './unitTakeIn.js';
 import type { WatchView } from './watch/causes.js';
 import type { CycleRecord } from './watch/cycleRecord.js';
 import type { WatchEvent } from './watch/event.js';
+import { INDICATORS_VERSION } from './watch/indicators.js';
 import { startWatch } from './watch/watch.js';
 
 export type { UnitState } from './unitState.js';
@@ -167,6 +168,10 @@ export function restoreUnit(unit: UnitDefinition, snapshot: UnitSnapshot): UnitS
   });
   // One saved before inlet gas was looked at has nothing of it.
   const saved: Omit<UnitState, 'gas'> & Partial<UnitState> = structuredClone(snapshot.state);
+  if (saved.watch.indicators_version !== INDICATORS_VERSION) {
+    saved.watch.indicators = {};
+    saved.watch.indicators_version = INDICATORS_VERSION;
+  }
   return { ...saved, gas: saved.gas ?? model.stores.map(startGasMemories) };
 }
 

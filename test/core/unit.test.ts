@@ -182,6 +182,21 @@ describe('a saved unit', () => {
   });
 
   it.each([
+    ['indicators of another shape', { heat_transfer: { of: 'older times' } }, 0],
+    ['no indicators yet', undefined, undefined],
+  ])('goes on from one with %s, with the beds as saved', (_, indicators, version) => {
+    const scans = dayOf(12);
+    const half = startUnit(unit);
+    runAll(half, scans.slice(0, 6));
+    const { version: own, state } = saveUnit(half);
+    Object.assign(state.watch, { indicators, indicators_version: version });
+    const steps = runAll(restoreUnit(unit, { version: own, state }), scans.slice(6));
+    const sound = runAll(half, scans.slice(6));
+    expect(steps.map(({ estimate }) => estimate)).toEqual(sound.map(({ estimate }) => estimate));
+    expect(steps.at(-1)?.watch?.indicators.length).toBe(sound.at(-1)?.watch?.indicators.length);
+  });
+
+  it.each([
     ['another version', () => ({ version: 0, state: startUnit(unit) }), /version 0/],
     [
       'fewer stores',

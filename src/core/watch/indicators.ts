@@ -47,6 +47,12 @@ export const INDICATORS: readonly Indicator<unknown>[] = ALL.toSorted(
   (a, b) => placeOf(a) - placeOf(b),
 );
 
+/**
+ * Counts up where the state of an indicator changes its shape: states of another version are begun
+ * anew, baselines included, and the rest of the checkpoint is kept.
+ */
+export const INDICATORS_VERSION = 1;
+
 /** State of each indicator by kind, made when it is first stepped. Plain and bounded. */
 export type IndicatorStates = Partial<Record<IndicatorKind, unknown>>;
 

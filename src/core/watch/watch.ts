@@ -13,7 +13,7 @@ import {
 } from './condition.js';
 import type { EventKind, WatchEvent } from './event.js';
 import type { IndicatorView } from './indicator.js';
-import type { IndicatorStates } from './indicators.js';
+import { INDICATORS_VERSION, type IndicatorStates } from './indicators.js';
 import { INDICATOR_EVENTS, watchEvent } from './kinds.js';
 import * as say from './messages.js';
 import { watchBlind, watchDrop } from './operatorAlarms.js';
@@ -41,6 +41,8 @@ export interface WatchState {
   lastReading_ms: number | null;
   /** Absent in a state saved before there were any. */
   indicators?: IndicatorStates;
+  /** INDICATORS_VERSION of that; states of another one are not taken over. */
+  indicators_version?: number;
 }
 
 const AT_ONCE = { on_delay_s: 0, off_delay_s: 0 };
@@ -51,7 +53,12 @@ const MANY_LEAST = 4;
 const GAP_SCANS = 5;
 
 export function startWatch(): WatchState {
-  return { conditions: {}, lastReading_ms: null, indicators: {} };
+  return {
+    conditions: {},
+    lastReading_ms: null,
+    indicators: {},
+    indicators_version: INDICATORS_VERSION,
+  };
 }
 
 /**
