@@ -53,17 +53,19 @@ describe('a unit that heard nothing for long', () => {
   });
 
   it('forgets as well where the day passed in empty scans', () => {
-    const state = startUnit(unit);
-    advance(unit, state, scanAt(0, 0, 300), HOURS);
+    // A day of scans, though not of so many.
+    const slow = { ...unit, scan_period_s: 300 };
+    const state = startUnit(slow);
+    advance(slow, state, scanAt(0, 0, 300), HOURS);
     const nothing = { hours_at_W: [], profile: false };
     for (let hour = 1; hour <= 25; hour++) {
       const empty = scanAt(hour * 3600_000, 0, 300);
       empty.values.fill(Number.NaN);
-      advance(unit, state, empty, nothing);
+      advance(slow, state, empty, nothing);
     }
     const late = scanAt(25.5 * 3600_000, 0, 300);
-    const step = advance(unit, state, late, HOURS);
-    const fresh = advance(unit, startUnit(unit), late, HOURS);
+    const step = advance(slow, state, late, HOURS);
+    const fresh = advance(slow, startUnit(slow), late, HOURS);
     expect(step.estimate.stores).toEqual(fresh.estimate.stores);
   });
 });

@@ -22,12 +22,6 @@ export interface Lack {
 export const NO_LACK: Lack = { most_W: 0, until_s: 0, energy_J: 0 };
 
 /**
- * Where more than this share of the power is missing at first, a discharge at that power does not
- * begin. What is missing fades within 10 minutes as the lids are swept, so that a fifth at its most is
- * no more than a sixtieth of an hour's energy.
- */
-export const LACK_MOST = 0.2;
-/**
  * What is missing at first counts from this share of the energy of the first quarter of an hour on: the
  * span over which energy is settled, and the class of a billing meter (0.5). It is that of 4.5 s, less
  * than a ramp takes.
@@ -130,14 +124,19 @@ export function toldBelow(margins: readonly StartMargin[], power_W: number): num
 }
 
 /**
- * By how much a run begins [W], below 0 where it does not: no more than `LACK_MOST` may be missing while
- * the lids are swept, and nothing once they are.
+ * By how much a run begins [W], below 0 where it does not: the power must be there once the lids are
+ * swept. What is missing before that fades within 10 minutes and is told (`firstMinutes`); it does not
+ * make a store of hours an empty one, whether the unit stands or has just begun to push cold gas out.
  *
- * @param margins while the lids are swept, the last of them the first after
+ * @param margins while the lids are swept, the last of them the first after; none: Infinity
  */
-export function beginMargin(margins: readonly StartMargin[], power_W: number): number {
-  const last = margins[margins.length - 1]?.margin_W ?? Number.POSITIVE_INFINITY;
-  return Math.min(last, leastMargin(margins) + LACK_MOST * power_W);
+export function beginMargin(margins: readonly StartMargin[]): number {
+  return margins[margins.length - 1]?.margin_W ?? Number.POSITIVE_INFINITY;
+}
+
+/** A unit whose gas is too cold for any power gives none meanwhile; it does not draw instead. */
+export function startMargin(t_s: number, greatest_W: number, power_W: number): StartMargin {
+  return { t_s, margin_W: Math.max(greatest_W, 0) - power_W };
 }
 
 /** What is told of the first minutes, and what is then missing at the p90, p50 and p10 of the energy [J]. */

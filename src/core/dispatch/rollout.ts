@@ -4,7 +4,7 @@ import type { StoreDefinition, UnitDefinition } from '../definitions.js';
 import type { EndCause } from '../estimate.js';
 import type { Machine } from '../machine/machine.js';
 import type { WallModel } from '../track/wallZone.js';
-import { beginMargin, leastMargin, type StartMargin } from './firstMinutes.js';
+import { beginMargin, type StartMargin, startMargin } from './firstMinutes.js';
 import { excessLag, isSwept, throughPlenum } from './plenum.js';
 import { endOfBed, flowWithin, greatestDrop, stepStore } from './stepStore.js';
 
@@ -92,8 +92,8 @@ const FOLLOW = 0.15;
  *
  * The outlets' rules wait until the plenum is swept, 10 minutes at most: gas that stood under a lid must
  * not end a discharge. Flow and pressure drop do not wait. Where the power would need more than they
- * let through, the unit gives what it can (`start`); it has not begun, 0 h, where more than
- * `LACK_MOST` is missing meanwhile or a rule is still broken then. Each rule's time is interpolated
+ * let through, the unit gives what it can (`start`); it has not begun, 0 h, where a rule is still
+ * broken then. Each rule's time is interpolated
  * within its step, so the result is smooth in the state. What leaves a bed is known as the mean of a step, so
  * it counts for that step's middle, later by the lag of the plenum (see `excessLag`); the flow of a
  * step is that of its own middle, by a straight line through the last two.
@@ -152,15 +152,13 @@ export function rollOut(
     let most = limits.discharge.flow_max_kg_s;
     if (!swept) {
       most = flowWithin(input.stores, beds, limits.pressure_drop_max_Pa, most);
-      const margin_W = powerAt(input, most, work) - input.power_W;
-      if (margin_W < leastMargin(start))
-        scarce = most < limits.discharge.flow_max_kg_s ? DROP : FLOW;
-      start.push({ t_s: t, margin_W });
+      scarce = most < limits.discharge.flow_max_kg_s ? DROP : FLOW;
+      start.push(startMargin(t, powerAt(input, most, work), input.power_W));
     }
     if (!swept && (t >= SWEEP_MOST_S || isSwept(input.stores, plenum, sweptMass, t))) {
       swept = true;
       atFirst.set(margins);
-      const begins_W = beginMargin(start, input.power_W);
+      const begins_W = beginMargin(start);
       atFirst[FLOW] = begins_W;
       if (!(begins_W > 0)) times[scarce] = first = 0;
     }

@@ -1,6 +1,6 @@
 import type { BedWork } from '../bed/kernel.js';
 import type { Direction } from '../definitions.js';
-import type { StartMargin } from '../dispatch/firstMinutes.js';
+import { type StartMargin, startMargin } from '../dispatch/firstMinutes.js';
 import { excessLag, isSwept } from '../dispatch/plenum.js';
 import { RULES, SWEEP_MOST_S } from '../dispatch/rollout.js';
 import { endOfBed, flowWithin } from '../dispatch/stepStore.js';
@@ -317,7 +317,7 @@ function stepRun(
   const margins = marginsOf(model, direction, outlets, power_W, drop, work);
   const elapsed = t - run.from_s;
   if (!run.swept) {
-    run.start.push({ t_s: elapsed, margin_W: powerOf(model, direction, most, work) - power_W });
+    run.start.push(startMargin(elapsed, powerOf(model, direction, most, work), power_W));
   }
   if (
     !run.swept &&

@@ -1,10 +1,4 @@
-import {
-  LACK_MOST,
-  lackBetween,
-  leastMargin,
-  type StartMargin,
-  toldBelow,
-} from '../dispatch/firstMinutes.js';
+import { lackBetween, leastMargin, type StartMargin, toldBelow } from '../dispatch/firstMinutes.js';
 import type { MissingAtFirst } from './offerFigures.js';
 
 /**
@@ -44,9 +38,4 @@ export function missingAtFirst(
       return low + ((high - low) * (after_s - from)) / (to - from);
     },
   };
-}
-
-/** Whether a discharge begins with a least margin: see `LACK_MOST`. */
-export function begins(least_W: number, power_W: number): boolean {
-  return least_W > -LACK_MOST * power_W;
 }

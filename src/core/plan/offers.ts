@@ -1,4 +1,4 @@
-import { firstMinutes, LACK_MOST } from '../dispatch/firstMinutes.js';
+import { firstMinutes } from '../dispatch/firstMinutes.js';
 import { RULES } from '../dispatch/rollout.js';
 import type { EndCause, FirstMinutes, Quantiles } from '../estimate.js';
 import type { PlanContext } from './context.js';
@@ -7,7 +7,7 @@ import { distinct, type OffersAsk, requireOffers } from './offerAsk.js';
 import { type OfferBlock, type OfferFigures, offerFigures } from './offerFigures.js';
 import { offerMarches } from './offerMarches.js';
 import { type Limited, type OfferRoute, offerRoutes, type PlanLimited } from './offerRoute.js';
-import { begins, missingAtFirst } from './offerStart.js';
+import { missingAtFirst } from './offerStart.js';
 import { sigmaOf } from './runFirstMinutes.js';
 import { breaksOf, type PlanSpread } from './spread.js';
 
@@ -57,7 +57,7 @@ const J_PER_MWH = 3.6e9;
  * is cut short once and for all: who runs through a block has run through all before it, the two are
  * the same. After a plan they are not: its own runs may have failed and the block be given all the same.
  * Where what is missing in the first minutes counts (`LACK_TOLD`), the block they are in is not run
- * through; where more than `LACK_MOST` of the power is, the discharge does not begin.
+ * through.
  *
  * @param asked powers, starts and certainties asked for twice are answered once
  * @throws WrongQuestion (a RangeError) for what cannot be asked; see `requireOffers`
@@ -87,20 +87,12 @@ function offerOf(route: OfferRoute, spread: PlanSpread, ask: OffersAsk, bid: num
   const breaks = breaksOf(spread);
   const { begins_s, power_W } = route;
   const start_W = breaks.start_W[last] ?? null;
-  const stops_s = (breaks.first_s[last] as Float64Array).map((stop_s, k) =>
-    start_W === null || begins(start_W[k] as number, power_W) ? stop_s : begins_s,
-  );
+  const stops_s = breaks.first_s[last] as Float64Array;
   if (Math.max(begins_s, run.from_s) >= run.first_s || stops_s.every((t) => t <= begins_s)) {
-    if (run.first_s > Math.max(begins_s, run.from_s)) {
-      const why = `flow: more than ${100 * LACK_MOST} % of the power is missing at first`;
-      return nothing({ ...route, refused: why }, bid, ask, { flow: 1 });
-    }
     const why = `empty: the rule ${run.ends_by} is broken as soon as it holds`;
     return nothing({ ...route, refused: why }, bid, ask, { [run.ends_by]: 1 });
   }
-  const rules = (breaks.rule[last] as Int8Array).map((rule, k) =>
-    start_W === null || begins(start_W[k] as number, power_W) ? rule : RULES.indexOf('flow'),
-  );
+  const rules = breaks.rule[last] as Int8Array;
   const missing = start_W === null ? null : missingAtFirst(run.start, start_W, power_W);
   const lack = start_W === null ? null : firstMinutes(run.start, power_W, sigmaOf(start_W));
   const held = new Uint8Array(stops_s.length).fill(1);

@@ -2,12 +2,12 @@ import { describe, expect, it } from 'vitest';
 import {
   beginMargin,
   firstMinutes,
-  LACK_MOST,
   LACK_TOLD,
   lackBetween,
   lackOf,
   leastMargin,
   type StartMargin,
+  startMargin,
   toldBelow,
   untoldLack,
 } from '../../../src/core/dispatch/firstMinutes.js';
@@ -64,10 +64,17 @@ describe('what is missing in the first minutes', () => {
     expect(untoldLack(POWER)).toBe(LACK_TOLD * POWER * 900);
   });
 
-  it('lets a run begin while no more than a fifth is missing, if nothing is after', () => {
-    expect(beginMargin(margins, POWER)).toBeCloseTo(LACK_MOST * POWER - 200e3, 6);
-    const later = [...margins, { t_s: 240, margin_W: -1 }];
-    expect(beginMargin(later, 10 * POWER)).toBe(-1);
+  it('lets a run begin whatever is missing at first, if nothing is after', () => {
+    const last = margins.at(-1)?.margin_W as number;
+    expect(beginMargin(margins)).toBe(last);
+    expect(beginMargin([{ t_s: -1, margin_W: -POWER }, ...margins])).toBe(last);
+    expect(beginMargin([...margins, { t_s: 240, margin_W: -1 }])).toBe(-1);
+    expect(beginMargin([])).toBe(Number.POSITIVE_INFINITY);
+  });
+
+  it('takes a machine that could only draw for one that gives nothing', () => {
+    expect(startMargin(3, -5e5, POWER)).toEqual({ t_s: 3, margin_W: -POWER });
+    expect(startMargin(3, 2 * POWER, POWER).margin_W).toBe(POWER);
   });
 
   it('is told with its probability, and with more missing for the plants that are worse', () => {
