@@ -1,3 +1,4 @@
+import type { Mode } from '../../definitions.js';
 import { heldOf } from '../follow.js';
 import type {
   Indicator,
@@ -19,20 +20,25 @@ interface StringSeen {
   /** Further from the charge inlet, and nearer to it. */
   readonly tests: readonly [SequentialState, SequentialState];
   readonly way: WayState;
+  /** Of the run under way: places taken, one per pitch of the thermocouples, and their sum [sigmas]. */
+  run: { mode: Mode; count: number; sum: number };
+  /** Mean of the last run that counted [sigmas]. */
+  mean: number | null;
   /** Disagreement as shown [sigmas], and since when; null before the string has seen a front. */
   value: number | null;
   time_ms: number | null;
 }
 
-/** A front passes a thermocouple's pitch in about an hour: mean spacing of values [s]. */
-const VALUE_EVERY_S = 3600;
+/** A unit runs one way some four times a day: mean spacing of values [s]. */
+const VALUE_EVERY_S = 6 * 3600;
 
 /**
  * Fitted front of each string against its tube, in sigmas of their difference. Neither is right to the
  * last: a fit that crosses a thermocouple, or two fronts that meet, set them apart for a while. So one
- * value counts each time the front has gone the pitch of the thermocouples, healthy up to limit less
- * deadband, degraded from limit and deadband on, which decides for the limit between; a string that does
- * not see the front says nothing.
+ * place counts each time the front has gone the pitch of the thermocouples. What sets them apart stays
+ * so while the front goes one way, so that the places of a run are no news of each other: their mean is
+ * one value, taken when the run is over, healthy up to limit less deadband, degraded from limit and
+ * deadband on, which decides for the limit between; a string that does not see the front says nothing.
  */
 export const AGREEMENT: Indicator<Record<string, StringSeen>> = {
   kind: 'front_view',
@@ -47,15 +53,17 @@ export const AGREEMENT: Indicator<Record<string, StringSeen>> = {
         const state = heldOf(states, subject, startHeld);
         const shown = views.find((view) => view.id === string.id);
         const way_m = wayOf(state.way, travelled);
-        let changed = false;
+        const { mode } = input.taken.conditions;
+        let changed = mode !== state.run.mode && endRun(state, mode, rule, watching);
         if (shown?.seen && shown.disagreement !== null) {
           const counts = way_m >= pitchOf(model);
           if (counts) {
-            take(state, shown.disagreement, rule, watching);
+            state.run.sum += shown.disagreement;
+            state.run.count++;
             state.way.way_m = 0;
           }
-          changed = counts || isDue(state.time_ms, input.time_ms);
-          if (changed) {
+          if (counts || changed || isDue(state.time_ms, input.time_ms)) {
+            changed = true;
             state.value = shown.disagreement;
             state.time_ms = input.time_ms;
           }
@@ -70,9 +78,26 @@ export const AGREEMENT: Indicator<Record<string, StringSeen>> = {
 const startHeld = (): StringSeen => ({
   tests: [startSequential(), startSequential()],
   way: { travelled_m: 0, way_m: 0 },
+  run: { mode: 'stand', count: 0, sum: 0 },
+  mean: null,
   value: null,
   time_ms: null,
 });
+
+/** @returns whether the run that is over gave a value */
+function endRun(
+  state: StringSeen,
+  mode: Mode,
+  rule: IndicatorRule,
+  watching: IndicatorsDefinition,
+): boolean {
+  const { count, sum } = state.run;
+  state.run = { mode, count: 0, sum: 0 };
+  if (count === 0) return false;
+  state.mean = sum / count;
+  take(state, state.mean, rule, watching);
+  return true;
+}
 
 function take(
   { tests }: StringSeen,
@@ -88,7 +113,7 @@ function take(
 
 function view(
   subject: string,
-  { tests, value, time_ms }: StringSeen,
+  { tests, value, mean, time_ms }: StringSeen,
   rule: IndicatorRule,
   watching: IndicatorsDefinition,
   canSee: boolean,
@@ -98,12 +123,13 @@ function view(
   const degraded = tests.some((test) => test.degraded);
   const state = degraded ? 'degraded' : value === null ? 'undetermined' : 'normal';
   const decision = decisionAt(watching.in_control_d, VALUE_EVERY_S);
-  const far = `the fitted front stands ${Math.abs(value ?? 0).toFixed(1)} sigmas ${(value ?? 0) > 0 ? 'further from' : 'nearer to'} the charge inlet than the bed model says (limit ${rule.limit.toFixed(1)})`;
+  const far = (sigmas: number) =>
+    `the fitted front stands ${Math.abs(sigmas).toFixed(1)} sigmas ${sigmas > 0 ? 'further from' : 'nearer to'} the charge inlet than the bed model says (limit ${rule.limit.toFixed(1)})`;
   const sentence = !canSee
     ? `${name}: with fewer than two thermocouples no front can be fitted to it.`
     : {
-        degraded: `${name}: ${far}, as it has kept on doing. Hours go by the bed model. Look at the profile of this string, at its sensors, and at the flow meter.`,
-        normal: `${name}: ${far}; over the way gone they agree.`,
+        degraded: `${name}: over whole runs ${far(mean ?? 0)}. Hours go by the bed model. Look at the profile of this string, at its sensors, and at the flow meter.`,
+        normal: `${name}: ${far(value ?? 0)}; over whole runs they agree.`,
         undetermined: `${name}: it has not seen a front yet to hold against the bed model.`,
       }[state];
   return {

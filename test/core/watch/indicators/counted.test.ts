@@ -9,38 +9,47 @@ const viewOf = (id: string, disagreement: number | null): FrontViewEstimate => (
   ...{ id, position_m: 1, position_sigma_m: 0.02, width_m: 0.3, width_sigma_m: 0.02 },
   ...{ seen: disagreement !== null, disagreement },
 });
-/** A front that goes 0.8 m an hour, the pitch of the thermocouples, and disagrees as listed by the hour. */
+const RUN_H = 4;
+/**
+ * A front that goes 0.8 m an hour, the pitch of the thermocouples, the other way every four hours, and
+ * disagrees as listed by the hour.
+ */
 const course =
   (sigmas: readonly (number | null)[], id = 'a') =>
   (hour: number): Moment => ({
+    mode: Math.floor(hour / RUN_H) % 2 === 0 ? 'charge' : 'discharge',
     travelled_m: 0.8001 * hour,
     estimate: { hot: { front_views: [viewOf(id, sigmas[Math.floor(hour)]!)] } },
   });
+const runs = (...sigmas: readonly number[]) =>
+  sigmas.flatMap((sigma) => Array<number>(RUN_H).fill(sigma));
 
 describe('front view against the tubes', () => {
-  it('is degraded where it has kept on beyond the limit, and healthy again likewise', () => {
-    const sigmas = [...Array(10).fill(1.5), ...Array(10).fill(4.5), ...Array(10).fill(0.5)];
+  it('is degraded where it has kept on beyond the limit over runs, and healthy again likewise', () => {
+    const list = runs(...Array(10).fill(1.5), ...Array(10).fill(4.5), ...Array(10).fill(0.5));
     const states: string[] = [];
-    const { found, of, views } = watchScript(AGREEMENT, 29.9, course(sigmas), {
+    const { found, of, views } = watchScript(AGREEMENT, 119.9, course(list), {
       each: (_, [first]) => states.push(first!.state),
     });
-    expect(found['hot/a']).toBeGreaterThan(12);
-    expect(found['hot/a']).toBeLessThan(15);
+    // ln(3000 days over 6 h) = 9.4, and 2 (4.5 - 3) a run: with the fourth run after 40 h.
+    expect(found['hot/a']).toBeGreaterThan(55);
+    expect(found['hot/a']).toBeLessThan(57);
     expect(states.at(-1)).toBe('normal');
-    expect(new Set(states.slice(0, 100))).toEqual(new Set(['normal']));
+    expect(new Set(states.slice(0, 400))).toEqual(new Set(['normal']));
     expect(of('hot/b')).toMatchObject({ state: 'undetermined', reason: 'not_exercised' });
     expect(views.flatMap(unsound)).toEqual([]);
   });
 
-  it('does not mind a front that is off for less than its way from one thermocouple to the next', () => {
-    const sigmas = [0, 0, 6, 0, 0, -6, 0, 0, 6, 0];
-    expect(watchScript(AGREEMENT, 9.9, course(sigmas)).found).toEqual({});
+  it('does not mind a front that is off for a part of a run, nor all along a single one', () => {
+    const partly = Array.from({ length: 40 }, () => [0, 6, 0, 0]).flat();
+    expect(watchScript(AGREEMENT, 159.9, course(partly), { dt_s: 600 }).found).toEqual({});
+    expect(watchScript(AGREEMENT, 23.9, course(runs(0, 0, 8, 0, 0, 0))).found).toEqual({});
   });
 
-  it('is never degraded where healthy ones scatter about what healthy ones come to', () => {
+  it('is never degraded where healthy runs scatter about what healthy ones come to', () => {
     const draw = normals(5);
-    const sigmas = Array.from({ length: 600 }, () => 1 + draw());
-    expect(watchScript(AGREEMENT, 599.9, course(sigmas), { dt_s: 1200 }).found).toEqual({});
+    const list = runs(...Array.from({ length: 300 }, () => 1 + draw()));
+    expect(watchScript(AGREEMENT, 1199.9, course(list), { dt_s: 1200 }).found).toEqual({});
   });
 
   it('takes nothing while it stands, or where the string sees no front', () => {
@@ -52,7 +61,7 @@ describe('front view against the tubes', () => {
   });
 
   it('says to which side, by the sign of limit and value', () => {
-    const { of } = watchScript(AGREEMENT, 9.9, course(Array(10).fill(-5), 'b'));
+    const { of } = watchScript(AGREEMENT, 23.9, course(runs(-5, -5, -5, -5, -5, -5), 'b'));
     expect(of('hot/b')).toMatchObject({ value: -5, limit: -3, state: 'degraded' });
     expect(of('hot/b').sentence).toMatch(/5\.0 sigmas nearer to the charge inlet/);
   });
