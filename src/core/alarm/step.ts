@@ -67,7 +67,7 @@ export interface AlarmTiming {
  *
  * Decided here, where the diagram leaves it open: I outranks G and G outranks H, and what is outranked
  * by H's rule alone is remembered; what a rule took off the list unacknowledged comes back as D where
- * its condition has returned meanwhile, since nobody has seen it; a latch that was not reset comes
+ * its condition has returned meanwhile, unless it was acknowledged in H; a latch that was not reset comes
  * back as E. A condition that comes or goes while held back is recorded, without a change of state.
  *
  * @param alarm is not changed
@@ -206,10 +206,11 @@ interface Who {
   readonly who: string;
 }
 
-function acknowledge(alarm: AlarmState, { who, why }: By & Who, time_ms: number): AlarmStep {
+function acknowledge(alarm: AlarmState, by: By & Who, time_ms: number): AlarmStep {
+  const { who, why } = by;
   const acknowledged = { who, why, since_ms: time_ms };
   const to = (state: AlarmStateName) =>
-    put({ ...alarm, state, acknowledged }, alarm, 'acknowledged', time_ms, { who, why });
+    put({ ...alarm, state, acknowledged }, alarm, 'acknowledged', time_ms, by);
   switch (alarm.state) {
     case 'unacknowledged':
       return to('acknowledged');
@@ -217,6 +218,10 @@ function acknowledge(alarm: AlarmState, { who, why }: By & Who, time_ms: number)
       return to('normal');
     case 'latched_unacknowledged':
       return to('latched_acknowledged');
+    case 'suppressed_by_design':
+      // Seen on the list of what is held back: it does not come back as returned.
+      if (!alarm.unseen) return refuse(alarm, 'it is suppressed by design');
+      return put({ ...alarm, unseen: false, acknowledged }, alarm, 'acknowledged', time_ms, by);
     case 'normal':
       return refuse(alarm, 'nothing of it is to be acknowledged');
     case 'acknowledged':

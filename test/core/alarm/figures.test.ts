@@ -128,8 +128,9 @@ describe('figures of an alarm system', () => {
 });
 
 describe('suppression by design', () => {
-  it('holds back by mode: discharge alarms but while discharging, flow alerts that come up at a stand', () => {
-    expect(heldByDesign('outlet_near_limit', 'stand', true)).toBe(true);
+  it('holds back by mode what comes up under it, and never what is shown already', () => {
+    expect(heldByDesign('outlet_near_limit', 'stand', true)).toBe(false);
+    expect(heldByDesign('outlet_near_limit', 'stand', false)).toBe(true);
     expect(heldByDesign('outlet_near_limit', 'charge', false)).toBe(true);
     expect(heldByDesign('outlet_near_limit', 'discharge', true)).toBe(false);
     expect(heldByDesign('pressure_drop_near_limit', 'charge', true)).toBe(false);

@@ -64,6 +64,8 @@ describe('the diagram of the standard', () => {
     ],
     ['raise suppress return release', 'ABHHD', 'returned under a rule before anybody saw it'],
     ['raise return suppress release', 'ABDHD', 'a rule over what nobody saw'],
+    ['raise suppress return ack release', 'ABHHHA', 'acknowledged under the rule, returned'],
+    ['raise suppress ack release', 'ABHHB', 'acknowledged under the rule, stands after it'],
     ['suppress raise return release', 'AHHHA', 'all of it under a rule: never shown'],
     ['suppress raise release', 'AHHB', 'a rule ends while the condition stands'],
     ['remove restore', 'AIA', 'out of service while normal'],
@@ -121,7 +123,7 @@ describe('the diagram of the standard', () => {
     ['ack', '', 'nothing of it is to be acknowledged'],
     ['ack', 'raise ack', 'it was acknowledged by mara'],
     ['ack', 'raise shelve', 'it is shelved'],
-    ['ack', 'raise suppress', 'it is suppressed by design'],
+    ['ack', 'suppress raise', 'it is suppressed by design'],
     ['ack', 'raise remove', 'it is out of service'],
     ['reset', 'raise', 'its condition still stands'],
     ['reset', '', 'it is not latched'],
@@ -196,6 +198,7 @@ function modelStep(m: Model, word: Word, time: number, latching: boolean): Model
     next.shelf = null;
   }
   if (word === 'restore') next.service = false;
+  if (word === 'ack' && outer(m) === 'H') next.isUnseen = false;
   const isHeld = outer(next).match(/[GHI]/) !== null;
   if (!wasHeld && !isHeld) {
     const isNew = word === 'raise' ? !m.stands : word !== 'return' || m.stands;
