@@ -2,9 +2,9 @@ import { writeFileSync } from 'node:fs';
 import { join } from 'node:path';
 import type { Command } from 'commander';
 import { History } from '../adapters/history/history.js';
-import { gatherReport } from '../adapters/history/reportReader.js';
-import { reportHtml } from '../adapters/report/html.js';
-import { reportCsv } from '../adapters/report/reportCsv.js';
+import { gatherReport, thinning } from '../adapters/history/reportReader.js';
+import { REPORT_FORMATS, type ReportFormat, renderReport } from '../adapters/report/render.js';
+import { REPORT_TABLES, type ReportTable } from '../adapters/report/reportCsv.js';
 import { loadSite } from '../config/load.js';
 import { findingsOf } from '../core/report/findings.js';
 import type { ReportData } from '../core/report/reportData.js';
@@ -20,14 +20,13 @@ interface ReportOptions {
   readonly unit?: string;
   readonly at?: string;
   readonly format?: string;
+  readonly table?: string;
   readonly out?: string;
 }
 
-const FORMATS = ['html', 'json', 'csv'] as const;
-type Format = (typeof FORMATS)[number];
-
 function report(options: ReportOptions): void {
   const format = formatOf(options);
+  const table = tableOf(options, format);
   const from_ms = parsePoint_ms('--from', options.from);
   const to_ms = options.to === undefined ? Date.now() : parsePoint_ms('--to', options.to);
   if (!(to_ms > from_ms))
@@ -50,33 +49,39 @@ function report(options: ReportOptions): void {
         made_ms: Date.now(),
         profiles_at_ms,
       },
+      ...thinning(site.store, Date.now()),
     });
     if (data.readings.scans === 0)
       throw new RockhourError(
         'USAGE',
         `unit ${unit.id} has no estimates from ${data.from} to ${data.to} in ${site.store.folder}`,
       );
-    give(rendered(data, format), options.out);
+    give(renderReport(data, format, table), options.out);
     if (options.out !== undefined) tell(data, options.out);
   } finally {
     history.stop();
   }
 }
 
-function formatOf({ format, out }: ReportOptions): Format {
-  const ending = FORMATS.find((one) => out?.toLowerCase().endsWith(`.${one}`));
+function formatOf({ format, out }: ReportOptions): ReportFormat {
+  const ending = REPORT_FORMATS.find((one) => out?.toLowerCase().endsWith(`.${one}`));
   const chosen = format ?? ending ?? 'html';
-  if (FORMATS.includes(chosen as Format)) return chosen as Format;
+  if (REPORT_FORMATS.includes(chosen as ReportFormat)) return chosen as ReportFormat;
   throw new RockhourError(
     'USAGE',
-    `--format is ${JSON.stringify(format)}; expected ${FORMATS.join(', ')}`,
+    `--format is ${JSON.stringify(format)}; expected ${REPORT_FORMATS.join(', ')}`,
   );
 }
 
-function rendered(data: ReportData, format: Format): string {
-  if (format === 'csv') return reportCsv(data);
-  if (format === 'json') return `${JSON.stringify({ findings: findingsOf(data), ...data })}\n`;
-  return reportHtml(data);
+function tableOf({ table }: ReportOptions, format: ReportFormat): ReportTable {
+  if (table === undefined) return 'runs';
+  if (format !== 'csv')
+    throw new RockhourError('USAGE', `--table goes with --format csv; ${format} has all of them`);
+  if (REPORT_TABLES.includes(table as ReportTable)) return table as ReportTable;
+  throw new RockhourError(
+    'USAGE',
+    `--table is ${JSON.stringify(table)}; expected ${REPORT_TABLES.join(', ')}`,
+  );
 }
 
 function give(text: string, out: string | undefined): void {
@@ -118,6 +123,10 @@ export function register(program: Command): void {
       'times whose profiles are drawn, with commas; the last runs unless told',
     )
     .option('--format <format>', 'html, json or csv; by the ending of --out, else html')
+    .option(
+      '--table <table>',
+      'of csv: runs (default), findings, indicators, thermocouples, events',
+    )
     .option('--out <file>', 'file to write; standard output unless told')
     .action(report);
 }

@@ -1,3 +1,4 @@
+import type { StoreConfig } from '../../config/site.js';
 import { alarmFigures } from '../../core/alarm/figures.js';
 import type { StoreDefinition, UnitDefinition } from '../../core/definitions.js';
 import { type Estimate, QUALITIES, type Quality } from '../../core/estimate.js';
@@ -20,26 +21,34 @@ export interface ReportAsk {
   readonly to_ms: number;
   /** When it is made [ms since 1970]. */
   readonly made_ms: number;
+  /** Before this time the history keeps one estimate in so many seconds alone. */
+  readonly thinned_before_ms: number;
+  readonly thinned_to_s: number;
   /** Times whose profiles are shown; empty: the ends of the last runs of each kind [ms]. */
   readonly profiles_at_ms: readonly number[];
 }
 
 /** Points of a plotted series; more than the sheet has pixels would not show. */
 const POINTS = 700;
-const MOST_EVENTS = 5000;
+const MOST_EVENTS = 20_000;
 const MOST_CYCLES = 20_000;
 /** A profile is kept every ten minutes; one further off is of another moment. */
 const NEAR_MS = 900_000;
+const DAY_MS = 86_400_000;
 const TEN_MINUTES_MS = 600_000;
 
 /** Gathers from the local history all that a report of a unit over a span is made of. */
 export function gatherReport(history: History, unit: UnitDefinition, ask: ReportAsk): ReportData {
   const { from_ms, to_ms } = ask;
   const iso = (ms: number) => new Date(ms).toISOString();
-  const cycles = history.cycles.between(unit.id, from_ms, to_ms, undefined, MOST_CYCLES);
-  const events = history.events.between(unit.id, from_ms, to_ms, MOST_EVENTS).reverse();
+  const cycles = history.cycles
+    .between(unit.id, from_ms, to_ms, undefined, MOST_CYCLES)
+    .filter(({ to }) => Date.parse(to) > from_ms && Date.parse(to) <= to_ms);
+  const found = history.events.between(unit.id, from_ms, to_ms, MOST_EVENTS + 1);
+  const events = found.slice(0, MOST_EVENTS).reverse();
   const latest = history.estimates.newestUntil(unit.id, from_ms, to_ms);
   const watch = history.watch.newestUntil(unit.id, from_ms, to_ms);
+  const [first] = history.watch.between(unit.id, from_ms, to_ms, 1);
   return {
     site: ask.site,
     unit: unit.id,
@@ -48,7 +57,7 @@ export function gatherReport(history: History, unit: UnitDefinition, ask: Report
     ...{ from: iso(from_ms), to: iso(to_ms), made: iso(ask.made_ms) },
     rated: { power_MW_el: unit.rated_power_W / 1e6, hours: unit.rated_hours },
     stores: unit.stores.map(aboutStore),
-    readings: readingsOf(history, unit, from_ms, to_ms),
+    readings: readingsOf(history, unit, ask),
     series: seriesOf(history, unit, from_ms, to_ms),
     cycles,
     profiles: profilesOf(history, unit, cycles, ask),
@@ -56,6 +65,10 @@ export function gatherReport(history: History, unit: UnitDefinition, ask: Report
     indicators: watch?.indicators ?? [],
     causes: watch?.causes ?? [],
     events,
+    older_events_left_out: found.length > MOST_EVENTS,
+    degraded_at_start: (first?.indicators ?? [])
+      .filter(({ state }) => state === 'degraded')
+      .map(({ kind, subject }) => ({ kind, subject })),
     alarms: figuresOf(history, unit, from_ms, to_ms),
   };
 }
@@ -73,18 +86,22 @@ function aboutStore(store: StoreDefinition): ReportData['stores'][number] {
 function readingsOf(
   history: History,
   unit: UnitDefinition,
-  from_ms: number,
-  to_ms: number,
+  { from_ms, to_ms, thinned_before_ms, thinned_to_s }: ReportAsk,
 ): ReportReadings {
   const counts = new Map<Quality, number>();
-  // A scan may be late by its deadline; only what is missing beyond two periods counts.
-  const usual_ms = 2000 * unit.scan_period_s;
+  // A scan may be late by its deadline; only what is missing beyond two periods counts. Of older times
+  // less is kept: there a gap is what is longer than two of those.
+  const usual_ms = (time_ms: number) =>
+    2000 *
+    (time_ms < thinned_before_ms ? Math.max(thinned_to_s, unit.scan_period_s) : unit.scan_period_s);
   let before_ms = from_ms;
   let [scans, longest_ms, missing_ms] = [0, 0, 0];
   const gap = (time_ms: number) => {
     const beyond = time_ms - before_ms;
-    if (beyond > usual_ms) missing_ms += beyond;
-    longest_ms = Math.max(longest_ms, beyond > usual_ms ? beyond : 0);
+    if (beyond > usual_ms(before_ms)) {
+      missing_ms += beyond;
+      longest_ms = Math.max(longest_ms, beyond);
+    }
     before_ms = time_ms;
   };
   for (const { time_ms, values } of history.estimates.rows(unit.id, from_ms, to_ms, ['quality'])) {
@@ -97,6 +114,8 @@ function readingsOf(
   const quality = Object.fromEntries(QUALITIES.map((name) => [name, counts.get(name) ?? 0]));
   return {
     scans,
+    thinned_before: from_ms < thinned_before_ms ? new Date(thinned_before_ms).toISOString() : null,
+    thinned_to_s,
     quality: quality as Record<Quality, number>,
     longest_gap_h: longest_ms / 3_600_000,
     missing_h: missing_ms / 3_600_000,
@@ -219,7 +238,17 @@ function figuresOf(
     annunciated: figures.annunciated,
     per_day: figures.per_day,
     most_in_10_min: figures.most_in_10_min,
+    floods: figures.floods.length,
+    share_in_flood: figures.share_in_flood,
     chattering: figures.chattering.map(({ id }) => id),
     most_frequent: figures.most_frequent.map(({ id, count }) => ({ id, count })),
   };
+}
+
+/** What `gatherReport` is to know of the thinning of a store, as of a time. */
+export function thinning(
+  { thin_after_days, thin_to_s }: StoreConfig,
+  now_ms: number,
+): Pick<ReportAsk, 'thinned_before_ms' | 'thinned_to_s'> {
+  return { thinned_before_ms: now_ms - thin_after_days * DAY_MS, thinned_to_s: thin_to_s };
 }

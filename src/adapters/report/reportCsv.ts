@@ -1,11 +1,71 @@
+import { findingsOf } from '../../core/report/findings.js';
 import type { ReportData } from '../../core/report/reportData.js';
 import { hoursOf } from '../../core/report/totals.js';
 
+/** Tables of a report that can be had as CSV. */
+export const REPORT_TABLES = ['runs', 'findings', 'indicators', 'thermocouples', 'events'] as const;
+export type ReportTable = (typeof REPORT_TABLES)[number];
+
+type Field = string | number | null | undefined;
+
 /**
- * The runs of a report as CSV after RFC 4180, one row per run and store: what a person wants in a
- * spreadsheet. Units stand in the names of the columns; an empty field is not known.
+ * A table of a report as CSV after RFC 4180, for a spreadsheet. Units stand in the names of the
+ * columns; an empty field is not known.
  */
-export function reportCsv({ cycles, stores }: ReportData): string {
+export function reportCsv(data: ReportData, table: ReportTable = 'runs'): string {
+  return TABLES[table](data)
+    .map((row) => row.map(field).join(','))
+    .join('\r\n')
+    .concat('\r\n');
+}
+
+const TABLES: Readonly<Record<ReportTable, (data: ReportData) => Field[][]>> = {
+  runs,
+  findings: (data) => [
+    ['level', 'subject', 'title', 'text', 'evidence', 'check'],
+    ...findingsOf(data).map(({ level, subject, title, text, evidence, check }) => [
+      ...[level, subject, title, text, evidence.join(' '), check],
+    ]),
+  ],
+  indicators: ({ indicators }) => [
+    [
+      ...['indicator', 'subject', 'state', 'reason', 'value', 'sigma', 'unit', 'healthy'],
+      ...['healthy_from', 'limit', 'decided', 'time', 'sentence'],
+    ],
+    ...indicators.map((v) => [
+      ...[v.kind, v.subject, v.state, v.reason, v.value, v.sigma, v.unit, v.healthy],
+      ...[v.healthy_from, v.limit, v.score, v.time, v.sentence],
+    ]),
+  ],
+  thermocouples: ({ sensors }) => [
+    ['thermocouple', 'store', 'string', 'position_m', 'group', 'verdict', 'since', 'evidence'],
+    ...sensors.map((s) => [
+      ...[s.id, s.store, s.string, s.position_m, s.group],
+      ...[s.now?.verdict, s.now?.since, s.now?.evidence],
+    ]),
+  ],
+  events: ({ events }) => [
+    [
+      'time',
+      'id',
+      'kind',
+      'subject',
+      'class',
+      'priority',
+      'transition',
+      'value',
+      'limit',
+      'message',
+    ],
+    ...events.map((e) => [
+      ...[e.time, e.id, e.kind, e.subject, e.class, e.priority, e.transition, e.value, e.limit],
+      e.message,
+    ]),
+  ],
+};
+
+/** One row per run and store. */
+function runs({ cycles, stores }: ReportData): Field[][] {
   const rows = cycles.flatMap((cycle) =>
     stores.map(({ id }) => {
       const run = cycle.stores[id];
@@ -25,10 +85,7 @@ export function reportCsv({ cycles, stores }: ReportData): string {
       ];
     }),
   );
-  return [HEAD, ...rows]
-    .map((row) => row.map(field).join(','))
-    .join('\r\n')
-    .concat('\r\n');
+  return [HEAD, ...rows];
 }
 
 const HEAD = [
@@ -40,7 +97,7 @@ const HEAD = [
   ...['thermocouples_rejected', 'raised'],
 ];
 
-function field(value: string | number | null | undefined): string {
+function field(value: Field): string {
   if (value === null || value === undefined) return '';
   const text = String(value);
   // A spreadsheet would take a text that begins like a formula for one.

@@ -160,7 +160,7 @@ export function eventTable({ events, alarms }: ReportData): string {
   const figures =
     alarms === null
       ? ''
-      : `<p>${alarms.annunciated} alarms annunciated, ${alarms.per_day.toFixed(1)} a day, at most ${alarms.most_in_10_min} in 10 min. ${
+      : `<p>${alarms.annunciated} alarms annunciated, ${alarms.per_day.toFixed(1)} a day, at most ${alarms.most_in_10_min} in 10 min, ${alarms.floods === 0 ? 'no flood' : `${alarms.floods} floods, ${percent(alarms.share_in_flood)} of the time`}. ${
           alarms.chattering.length > 0
             ? `Chattering: ${text(alarms.chattering.join(', '))}.`
             : 'None chattered.'

@@ -1,5 +1,7 @@
 import { CAUSES } from '../watch/causeTable.js';
-import type { IndicatorView } from '../watch/indicator.js';
+import type { WatchEvent } from '../watch/event.js';
+import { INDICATOR_REASONS, type IndicatorReason, type IndicatorView } from '../watch/indicator.js';
+import { INDICATOR_EVENTS } from '../watch/kinds.js';
 import type { ReportData } from './reportData.js';
 import { cycleTotals, median } from './totals.js';
 
@@ -30,6 +32,7 @@ const TRIP_FALL = 0.02;
 export function findingsOf(data: ReportData): Finding[] {
   const found = [
     ...degraded(data),
+    ...over(data),
     ...sensors(data),
     ...efficiency(data),
     ...rising(data),
@@ -155,6 +158,17 @@ function coverage({ readings, cycles, from, to }: ReportData): Finding[] {
       'Not all estimates are good',
       `${percent(poor / scans)} of the scans are not of good quality: ${quality.degraded} degraded, ${quality.blind} blind, ${quality.stale} stale.`,
     );
+  if (readings.thinned_before !== null)
+    note(
+      'Older times are kept thinned',
+      `Before ${minute(readings.thinned_before)} one estimate in ${readings.thinned_to_s} s is kept: shorter gaps and what lay between are not in this report. Runs, alarms and alerts are whole.`,
+    );
+  const early = cycles.filter((cycle) => cycle.from < from).length;
+  if (early > 0)
+    note(
+      'Runs from before the span',
+      `${early} of ${cycles.length} runs began before it. A run belongs, whole, to the span in which it ends.`,
+    );
   const { incomplete } = cycleTotals(cycles);
   if (incomplete > 0)
     note(
@@ -164,19 +178,72 @@ function coverage({ readings, cycles, from, to }: ReportData): Finding[] {
   return found;
 }
 
+/** Why an indicator is left open, as a person says it. */
+const OPEN_WORDS: Readonly<Record<IndicatorReason, string>> = {
+  not_instrumented: 'cannot be told with these instruments',
+  learning: 'still learn what is healthy',
+  not_exercised: 'wait for the plant to do what would show it',
+  too_uncertain: 'are too uncertain',
+};
+
 function undetermined({ indicators }: ReportData): Finding[] {
-  const open = indicators.filter(({ reason }) => reason === 'not_instrumented');
+  const open = indicators.filter(({ state }) => state === 'undetermined');
   if (open.length === 0) return [];
+  const counts = INDICATOR_REASONS.flatMap((reason) => {
+    const count = open.filter((view) => view.reason === reason).length;
+    return count === 0 ? [] : [`${count} ${OPEN_WORDS[reason]}`];
+  });
   return [
     {
       level: 'note',
       subject: 'unit',
-      title: 'What these instruments cannot tell',
-      text: 'No decision is possible on the following; that is not the same as healthy.',
+      title: `${open.length} of ${indicators.length} indicators are undecided`,
+      text: `That is not the same as healthy: ${counts.join(', ')}.`,
       evidence: open.map(({ sentence }) => sentence),
       check: null,
     },
   ];
+}
+
+/** What was degraded within the span and no longer is at its end: raised, or returned. */
+function over({ events, indicators, degraded_at_start, from }: ReportData): Finding[] {
+  const still = new Set(
+    indicators
+      .filter(({ state }) => state === 'degraded')
+      .map(({ kind, subject }) => `${INDICATOR_EVENTS[kind]}/${subject}`),
+  );
+  const of = new Map<string, WatchEvent[]>();
+  for (const event of events) {
+    const key = `${event.kind}/${event.subject}`;
+    if (!DEGRADATIONS.has(event.kind) || still.has(key)) continue;
+    of.set(key, [...(of.get(key) ?? []), event]);
+  }
+  for (const { kind, subject } of degraded_at_start) {
+    const key = `${INDICATOR_EVENTS[kind]}/${subject}`;
+    if (!still.has(key) && !of.has(key)) of.set(key, []);
+  }
+  return [...of].map(([key, list]): Finding => {
+    const raised = list.filter(({ transition }) => transition === 'raised');
+    const last = list.at(-1);
+    const [kind = '', ...subject] = key.split('/');
+    const since = list[0]?.transition === 'raised' ? list[0].time : from;
+    const until = last?.transition === 'returned' ? ` to ${minute(last.time)}` : '';
+    return {
+      level: 'watch',
+      subject: subject.join('/'),
+      title: `${words(kind)}: was so from ${minute(since)}${until}, not at the end of the span`,
+      text:
+        raised.length > 1 ? `Raised ${raised.length} times, the last time so:` : 'It was told so:',
+      evidence: [raised.at(-1)?.message ?? last?.message ?? 'It began before the span.'],
+      check: null,
+    };
+  });
+}
+
+const DEGRADATIONS: ReadonlySet<string> = new Set(Object.values(INDICATOR_EVENTS));
+
+function minute(iso: string): string {
+  return `${iso.slice(0, 10)} ${iso.slice(11, 16)}`;
 }
 
 function nothing({ indicators, cycles }: ReportData): Finding {
@@ -184,11 +251,14 @@ function nothing({ indicators, cycles }: ReportData): Finding {
   return {
     level: 'note',
     subject: 'unit',
-    title: 'Nothing that needs attention was found',
+    title:
+      normal > 0
+        ? 'Nothing that needs attention was found'
+        : 'Nothing was found, and little was looked at',
     text:
       indicators.length === 0
         ? `No indicator was kept, so this rests on ${cycles.length} runs and the thermocouples alone.`
-        : `${normal} of ${indicators.length} indicators are as healthy, over ${cycles.length} runs.`,
+        : `Of ${indicators.length} indicators ${normal} are as healthy and none is degraded, over ${cycles.length} runs.`,
     evidence: [],
     check: null,
   };

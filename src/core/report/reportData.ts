@@ -62,9 +62,12 @@ export interface ReportSensor {
   }[];
 }
 
-/** What is known of the scans in the span. */
+/** What is known of the scans in the span, by the estimates that are still kept of it. */
 export interface ReportReadings {
   readonly scans: number;
+  /** Before this time only one estimate in so many seconds is kept; null: all are. */
+  readonly thinned_before: string | null;
+  readonly thinned_to_s: number;
   /** Scans by quality. */
   readonly quality: Readonly<Record<Quality, number>>;
   /** Longest time without a scan [h], and hours without one beyond the scan period in sum. */
@@ -77,6 +80,9 @@ export interface ReportAlarmFigures {
   readonly annunciated: number;
   readonly per_day: number;
   readonly most_in_10_min: number;
+  /** Stretches of more alarms than a person can answer, by the standard's measure. */
+  readonly floods: number;
+  readonly share_in_flood: number;
   readonly chattering: readonly string[];
   readonly most_frequent: readonly { readonly id: string; readonly count: number }[];
 }
@@ -102,13 +108,17 @@ export interface ReportData {
   }[];
   readonly readings: ReportReadings;
   readonly series: readonly ReportPoint[];
+  /** Runs that ended in the span, so that each belongs to one span only; some began before it. */
   readonly cycles: readonly CycleRecord[];
   readonly profiles: readonly ReportProfile[];
   readonly sensors: readonly ReportSensor[];
   /** Newest within the span. */
   readonly indicators: readonly IndicatorView[];
   readonly causes: readonly CauseView[];
-  /** Oldest first. */
+  /** Oldest first; of too many the newest. */
   readonly events: readonly WatchEvent[];
+  readonly older_events_left_out: boolean;
+  /** What stood degraded at the beginning of the span, by kind and subject. */
+  readonly degraded_at_start: readonly Pick<IndicatorView, 'kind' | 'subject'>[];
   readonly alarms: ReportAlarmFigures | null;
 }

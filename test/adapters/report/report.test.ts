@@ -7,8 +7,9 @@ import { afterAll, beforeAll, describe, expect, it } from 'vitest';
 import { escapeText } from '../../../src/adapters/report/escape.js';
 import { reportHtml } from '../../../src/adapters/report/html.js';
 import { plot } from '../../../src/adapters/report/plot.js';
-import { reportCsv } from '../../../src/adapters/report/reportCsv.js';
+import { REPORT_TABLES, reportCsv } from '../../../src/adapters/report/reportCsv.js';
 import { causesOf } from '../../../src/core/watch/causes.js';
+import type { WatchEvent } from '../../../src/core/watch/event.js';
 import { temporaryFolder } from '../../support/folders.js';
 import { requireProgram } from '../../support/requirements.js';
 import { openBrowser } from '../page/browser.js';
@@ -108,6 +109,21 @@ describe('the runs as CSV', () => {
 });
 
 const chromium = requireProgram('chromium');
+
+describe('the other tables as CSV', () => {
+  it.each(REPORT_TABLES)('%s: a head, and rows of as many fields', (table) => {
+    const event = { id: 'u/k/s', kind: 'k', subject: 's', message: 'm', time: 't', value: null };
+    const data = report({
+      indicators: [indicator({})],
+      events: [event as unknown as WatchEvent],
+    });
+    const [head, ...rows] = reportCsv(data, table).trimEnd().split('\r\n');
+    // Commas outside of quotes, and one.
+    const fields = (line: string) => line.replace(/"([^"]|"")*"/g, '').split(',').length;
+    expect(rows.length).toBeGreaterThan(0);
+    for (const row of rows) expect(fields(row)).toBe(fields(head!));
+  });
+});
 
 describe.skipIf(!chromium)('in a browser', { timeout: 60_000 }, () => {
   let browser: Browser;

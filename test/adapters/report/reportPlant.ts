@@ -61,7 +61,7 @@ export function report(part: Partial<ReportData> = {}): ReportData {
     readings: {
       scans: 8640,
       quality: { good: 8600, degraded: 40, blind: 0, stale: 0 },
-      ...{ longest_gap_h: 0, missing_h: 0 },
+      ...{ longest_gap_h: 0, missing_h: 0, thinned_before: null, thinned_to_s: 600 },
     },
     series: Array.from({ length: 60 }, (_, i) => ({
       ...{ time: iso(1.2 * i), state_of_charge: i / 60, power_MW_el: 1 },
@@ -87,8 +87,7 @@ export function report(part: Partial<ReportData> = {}): ReportData {
     ),
     indicators: [indicator({ state: 'normal', score: 0, value: 0.9 })],
     causes: [],
-    events: [],
-    alarms: null,
+    ...{ events: [], older_events_left_out: false, degraded_at_start: [], alarms: null },
     ...part,
   };
 }

@@ -2,7 +2,8 @@ import { describe, expect, it } from 'vitest';
 import { findingsOf } from '../../../src/core/report/findings.js';
 import { cycleTotals, median } from '../../../src/core/report/totals.js';
 import { causesOf } from '../../../src/core/watch/causes.js';
-import { cycles, indicator, report } from '../../adapters/report/reportPlant.js';
+import type { WatchEvent } from '../../../src/core/watch/event.js';
+import { cycles, FROM, indicator, report } from '../../adapters/report/reportPlant.js';
 
 describe('findings', () => {
   it('say that nothing was found where nothing was', () => {
@@ -27,6 +28,34 @@ describe('findings', () => {
     expect(findingsOf(data)[0]).toMatchObject({ level: 'act', subject: 'hot', check: null });
   });
 
+  const event = (hour: number, part: Partial<WatchEvent> = {}): WatchEvent => ({
+    ...{ id: 'u/heat_transfer_low/cold', unit: 'u', kind: 'heat_transfer_low', class: 'alert' },
+    ...{ priority: 'medium', subject: 'cold', transition: 'raised', value: 0.3, limit: 0.7 },
+    ...{ time: new Date(FROM + hour * 3_600_000).toISOString(), message: `told at ${hour}` },
+    ...part,
+  });
+
+  it('tell what was degraded within the span, though it no longer is at its end', () => {
+    const events = [event(10), event(20, { transition: 'returned' }), event(30)];
+    const returned = event(40, { transition: 'returned' });
+    const [first] = findingsOf(report({ events: [...events, returned] }));
+    expect(first).toMatchObject({ level: 'watch', subject: 'cold', evidence: ['told at 30'] });
+    expect(first?.title).toBe(
+      'Heat transfer low: was so from 2026-01-01 10:00 to 2026-01-02 16:00, not at the end of the span',
+    );
+    expect(first?.text).toContain('2 times');
+    // What stood at the beginning and returned, or was lost with a restart.
+    const standing = [{ kind: 'heat_transfer', subject: 'cold' }] as const;
+    const early = findingsOf(report({ events: [returned], degraded_at_start: standing }));
+    expect(early[0]?.title).toContain('was so from 2026-01-01 00:00 to 2026-01-02 16:00');
+    expect(findingsOf(report({ degraded_at_start: standing }))[0]?.level).toBe('watch');
+    // Still so at the end: the finding to act on alone. Other events are no degradation.
+    const still = findingsOf(report({ events, indicators: [indicator({})] }));
+    expect(still.filter(({ title }) => title.includes('was so'))).toEqual([]);
+    const other = event(1, { kind: 'data_stale', id: 'u/data_stale/u' });
+    expect(findingsOf(report({ events: [other] }))[0]?.level).toBe('note');
+  });
+
   it('tell sensors, tests under way, and what the instruments cannot tell', () => {
     const base = report();
     const [first, ...rest] = base.sensors;
@@ -42,7 +71,8 @@ describe('findings', () => {
     expect(told.map(({ level }) => level)).toEqual(['watch', 'watch', 'note']);
     expect(told[0]?.title).toBe('1 of 4 thermocouples are not believed');
     expect(told[1]?.title).toContain('60 % of the way');
-    expect(told[2]?.title).toBe('What these instruments cannot tell');
+    expect(told[2]?.title).toBe('1 of 2 indicators are undecided');
+    expect(told[2]?.text).toContain('1 cannot be told with these instruments');
   });
 
   it('see a round trip that falls over the span, but not one that scatters', () => {
@@ -69,7 +99,8 @@ describe('findings', () => {
       readings: {
         scans: 100,
         quality: { good: 80, degraded: 15, blind: 3, stale: 2 },
-        ...{ longest_gap_h: 3, missing_h: 5 },
+        ...{ longest_gap_h: 3, missing_h: 5, thinned_before: '2026-01-02T00:00:00.000Z' },
+        thinned_to_s: 600,
       },
       cycles: cycles(6, { incomplete: ['gap'] }),
     });
@@ -79,6 +110,7 @@ describe('findings', () => {
         'Readings are missing',
         'Not all estimates are good',
         'Runs that are incomplete',
+        'Older times are kept thinned',
       ]),
     );
   });
