@@ -128,6 +128,13 @@ describe('facts of a unit', () => {
     }
   });
 
+  it('say how seldom the indicators call a healthy unit degraded', () => {
+    const often = siteOf('demo', (d) => {
+      d.units[0].watch = { indicators: { in_control_days: 310 } };
+    });
+    expect(unitFacts(often.units[0]!).watch).toEqual({ indicators: 31, each_d: 310, unit_d: 10 });
+  });
+
   it('point at what a person should look at', () => {
     const noted = (change: Parameters<typeof siteOf>[1]) =>
       unitFacts(siteOf('demo', change).units[0]!).notes.join('\n');

@@ -29,6 +29,7 @@ function unitText(unit: UnitFacts): string {
     hoursText(unit),
     limitsText(unit),
     storesText(unit.stores),
+    watchText(unit),
     missingText(unit),
     missingLimitsText(unit),
     notesText(unit.notes),
@@ -204,6 +205,15 @@ function layoutWords(store: StoreFacts): string {
   return counts.every((n) => n === counts[0])
     ? `${counts.length} x ${counts[0]}`
     : counts.join(' + ');
+}
+
+function watchText({ watch }: UnitFacts): string {
+  const { indicators, each_d, unit_d } = watch;
+  const told =
+    `${count(indicators, 'indicator')} raise alerts. In the mean, a healthy one is called degraded at ` +
+    `most once in ${figure(each_d)} days, so a healthy unit at most once in ${figure(unit_d)} days ` +
+    '(bounds, at the edge of what counts as healthy).';
+  return ['Watching', ...wrap(told, 0)].join('\n');
 }
 
 function missingText(unit: UnitFacts): string {

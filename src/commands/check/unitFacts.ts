@@ -2,6 +2,7 @@ import { cyclePower_W, type SettledCycle, settledCycle } from '../../core/cycle/
 import type { Direction, StoreDefinition, UnitDefinition } from '../../core/definitions.js';
 import { createMachine, type Machine } from '../../core/machine/machine.js';
 import { ZERO_CELSIUS_K } from '../../core/units.js';
+import { type InControl, inControlOf } from '../../core/watch/inControl.js';
 import { type LimitFacts, limitFacts } from './limitFacts.js';
 import { type MissingChannel, missingChannels } from './missing.js';
 import { type MissingLimit, missingLimits } from './missingLimits.js';
@@ -35,6 +36,8 @@ export interface UnitFacts {
   readonly stores: readonly StoreFacts[];
   /** What ramps, start-ups and connection make of the powers. */
   readonly limits: LimitFacts;
+  /** How seldom the indicators call a healthy unit degraded. */
+  readonly watch: InControl;
   readonly missing: readonly MissingChannel[];
   readonly missing_limits: readonly MissingLimit[];
   /** What a person should look at; not faults. */
@@ -63,6 +66,7 @@ export function unitFacts(unit: UnitDefinition): UnitFacts {
     round_trip: cycle.discharge.energy_MWh_el / cycle.charge.energy_MWh_el,
     stores,
     limits: limitFacts(unit),
+    watch: inControlOf(unit),
   };
   return {
     ...facts,

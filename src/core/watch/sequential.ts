@@ -32,11 +32,19 @@ export function startSequential(): SequentialState {
   return { up: 0, down: 0, degraded: false, count: 0 };
 }
 
-/** ln(gamma) for a mean time between false decisions and a spacing of values; at least ln 20. */
-export function decisionAt(inControl_d: number, spacing_s: number): number {
+/**
+ * ln(gamma) for a mean time between false decisions and a spacing of values; at least ln 20. Of an
+ * indicator with several tests (either side, ends, directions) any one may decide, so gamma grows by
+ * their number: exp(S) of each is at most its Shiryaev-Roberts sum, whose mean grows by 1 with each
+ * value; the sum over m of them is m n after n values, and at least gamma at the first decision.
+ *
+ * @param tests of the one indicator, >= 1
+ */
+export function decisionAt(inControl_d: number, spacing_s: number, tests = 1): number {
   if (!(inControl_d > 0)) throw new RangeError(`inControl_d must be positive, got ${inControl_d}`);
   if (!(spacing_s > 0)) throw new RangeError(`spacing_s must be positive, got ${spacing_s}`);
-  return Math.log(Math.max(20, (inControl_d * 86_400) / spacing_s));
+  if (!(tests >= 1)) throw new RangeError(`tests must be at least 1, got ${tests}`);
+  return Math.log(Math.max(20, (tests * inControl_d * 86_400) / spacing_s));
 }
 
 /**

@@ -81,6 +81,41 @@ describe('mean run length in control', () => {
   });
 });
 
+describe('mean run length of several tests', () => {
+  /** Values until the first of several tests decides; each pair of two sides shares its values. */
+  function firstOf(draw: () => number, pairs: number, decision: number): number {
+    const tests = Array.from({ length: pairs }, () => [startSequential(), startSequential()]);
+    for (let n = 1; n <= 4000; n++)
+      for (const [up, down] of tests as [SequentialState, SequentialState][]) {
+        const value = draw();
+        const at = { sigma: 1, healthy: 0, degraded: 1 };
+        stepSequential(up, { ...at, value }, decision);
+        stepSequential(down, { ...at, value: -value }, decision);
+        if (up.degraded || down.degraded) return n;
+      }
+    return 4000;
+  }
+
+  it('of one indicator is at least what is asked, its tests counted', () => {
+    const draw = normals(17);
+    const { mean, error } = meanRun(200, () => firstOf(draw, 1, decisionAt(50, 86_400, 2)));
+    expect(mean - 3 * error).toBeGreaterThan(50);
+  });
+
+  it('of a unit is at least that over the number of its indicators', () => {
+    const draw = normals(18);
+    const { mean, error } = meanRun(120, () => firstOf(draw, 5, decisionAt(200, 86_400, 2)));
+    expect(mean - 3 * error).toBeGreaterThan(200 / 5);
+  });
+
+  it('falls short of what is asked where a test is not counted', () => {
+    const draw = normals(19);
+    // Of ten tests that decide as one: the mean to the first is that of one over their number.
+    const { mean } = meanRun(120, () => firstOf(draw, 5, decisionAt(200, 86_400)));
+    expect(mean).toBeLessThan(200);
+  });
+});
+
 describe('delay of a detection', () => {
   // Wald: threshold and overshoot over the mean step delta^2/2; two values where half a decision caps them.
   it.each([0.7, 1, 2])('follows from the mean step where degraded is %d sigmas away', (shift) => {
@@ -148,10 +183,12 @@ describe('the test', () => {
     );
     expect(() => decisionAt(0, 60)).toThrow(/inControl_d/);
     expect(() => decisionAt(1, 0)).toThrow(/spacing_s/);
+    expect(() => decisionAt(1, 60, 0)).toThrow(/tests/);
   });
 
   it('asks for more evidence where values come more often, never for less than 20 to 1', () => {
     expect(decisionAt(3000, 3600)).toBeCloseTo(Math.log(72_000), 12);
+    expect(decisionAt(3000, 3600, 4)).toBeCloseTo(Math.log(4 * 72_000), 12);
     expect(decisionAt(1, 86_400)).toBe(Math.log(20));
   });
 });

@@ -31,6 +31,8 @@ interface StringSeen {
 
 /** A unit runs one way some four times a day: mean spacing of values [s]. */
 const VALUE_EVERY_S = 6 * 3600;
+/** Tests of each string: the fit may stand off to either side. */
+const SIDES = 2;
 
 /**
  * Fitted front of each string against its tube, in sigmas of their difference. Neither is right to the
@@ -105,7 +107,7 @@ function take(
   { limit, deadband }: IndicatorRule,
   watching: IndicatorsDefinition,
 ): void {
-  const decision = decisionAt(watching.in_control_d, VALUE_EVERY_S);
+  const decision = decisionAt(watching.in_control_d, VALUE_EVERY_S, SIDES);
   const sides = { healthy: limit - deadband, degraded: limit + deadband, sigma: 1 };
   stepSequential(tests[0], { ...sides, value: sigmas }, decision);
   stepSequential(tests[1], { ...sides, value: -sigmas }, decision);
@@ -122,7 +124,7 @@ function view(
   const name = `Store ${store}, string ${string}`;
   const degraded = tests.some((test) => test.degraded);
   const state = degraded ? 'degraded' : value === null ? 'undetermined' : 'normal';
-  const decision = decisionAt(watching.in_control_d, VALUE_EVERY_S);
+  const decision = decisionAt(watching.in_control_d, VALUE_EVERY_S, SIDES);
   const far = (sigmas: number) =>
     `the fitted front stands ${Math.abs(sigmas).toFixed(1)} sigmas ${sigmas > 0 ? 'further from' : 'nearer to'} the charge inlet than the bed model says (limit ${rule.limit.toFixed(1)})`;
   const sentence = !canSee

@@ -113,12 +113,13 @@ function followRule(
     estimator.heat_capacity_sigma,
     sharedSigma(model),
   );
+  const limits = bothSides(rule);
   return {
     configured: { value: 0, sigma },
     baseline: BASELINE,
     from_ms: watching.baseline_from_ms,
-    limits: bothSides(rule),
-    decision: decisionAt(watching.in_control_d, RUN_EVERY_S),
+    limits,
+    decision: decisionAt(watching.in_control_d, RUN_EVERY_S, limits.length),
   };
 }
 

@@ -120,12 +120,13 @@ function describe(
 }
 
 function followRule(rule: IndicatorRule, watching: IndicatorsDefinition): FollowRule {
+  const limits = bothSides(rule);
   return {
     configured: { value: 0, sigma: UNEVEN_SIGMA },
     baseline: BASELINE,
     from_ms: watching.baseline_from_ms,
-    limits: bothSides(rule),
-    decision: decisionAt(watching.in_control_d, NEWS_EVERY_S),
+    limits,
+    decision: decisionAt(watching.in_control_d, NEWS_EVERY_S, limits.length),
   };
 }
 
