@@ -164,7 +164,6 @@ class RockhourDaemon implements Daemon {
       site: site.name,
       mqtt_prefix: site.mqtt.out_prefix,
       deliver: (topic, payload) => this.mqtt.deliver(topic, payload),
-      isTold: (event) => this.alarms.isTold(event),
     });
     this.housekeeping = new Housekeeping({
       ...common,
@@ -182,6 +181,7 @@ class RockhourDaemon implements Daemon {
     });
     this.service = new DaemonService({
       ...{ siteName: site.name, version, runners: this.runners, history, counters, clock },
+      store: site.store,
       questions: this.questions,
       kept: (unit, table) => this.speaker.sayOffers(unit, table),
       health: () => this.health(),

@@ -4,6 +4,7 @@ import type { UnitDefinition } from './core/definitions.js';
 import { answerPlan, type PlanAnswer, type PlanQuestion } from './core/plan/ask.js';
 import { hoursAt, restoreUnit, type UnitSnapshot } from './core/unit.js';
 import { type UnitWorth, unitWorth } from './core/worth/unitWorth.js';
+import { type MadeReport, type MadeReportAsk, makeReport } from './daemon/makeReport.js';
 import { reasonOf } from './errors.js';
 
 /** A question to a worker: hours at some powers, what lies ahead, or what thermocouples are worth. */
@@ -25,14 +26,15 @@ export type WorkerQuestion =
       readonly unit: string;
       /** For the hours ahead of this state; null = over a settled day. */
       readonly snapshot: UnitSnapshot | null;
-    };
+    }
+  | { readonly kind: 'report'; readonly unit: string; readonly ask: MadeReportAsk };
 
 export interface NumberedQuestion {
   readonly id: number;
   readonly question: WorkerQuestion;
 }
 
-export type Answer = ReturnType<typeof hoursAt> | PlanAnswer | UnitWorth | null;
+export type Answer = ReturnType<typeof hoursAt> | PlanAnswer | UnitWorth | MadeReport | null;
 
 /** What was answered, or the words of what went wrong. */
 export interface WorkerReply {
@@ -48,6 +50,7 @@ function answerTo(unit: UnitDefinition, question: WorkerQuestion): Answer {
   if (question.kind === 'plan') {
     return answerPlan(unit, restoreUnit(unit, question.snapshot), question.question);
   }
+  if (question.kind === 'report') return makeReport(unit, question.ask);
   const { snapshot } = question;
   const run = unitWorth(unit, snapshot === null ? null : restoreUnit(unit, snapshot));
   let next = run.next();

@@ -4,9 +4,11 @@ import type {
   HealthPart,
   HistoryPoint,
   PlantService,
+  ReportQuestion,
   ServiceMessage,
   UnitNow,
 } from '../adapters/http/service.js';
+import type { StoreConfig } from '../config/site.js';
 import type { AlarmEntry, RecordedTransition } from '../core/alarm/entry.js';
 import type { AlarmReport } from '../core/alarm/report.js';
 import type { Mode } from '../core/definitions.js';
@@ -39,6 +41,7 @@ export interface PlantServiceParts {
   readonly version: string;
   readonly runners: ReadonlyMap<string, UnitRunner>;
   readonly history: History;
+  readonly store: StoreConfig;
   readonly questions: Questions;
   readonly counters: Counters;
   readonly alarms: AlarmPart;
@@ -157,6 +160,14 @@ export class DaemonService implements PlantService {
   ): CycleRecord[] {
     this.runner(unit);
     return this.parts.history.cycles.between(unit, from_ms, to_ms, kind, most);
+  }
+
+  bedReport(id: string, question: ReportQuestion): Promise<{ text: string; style: string }> {
+    const { unit } = this.runner(id);
+    this.parts.counters.add('questions');
+    const { version, siteName, questions, store, clock } = this.parts;
+    const made_ms = Math.floor(clock.now());
+    return questions.report(unit, { ...question, version, site: siteName, made_ms, store });
   }
 
   standing(unit?: string): AlarmEntry[] {

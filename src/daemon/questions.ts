@@ -6,6 +6,7 @@ import { takesLong } from '../core/plan/offerAsk.js';
 import type { UnitSnapshot } from '../core/unit.js';
 import type { UnitWorth } from '../core/worth/unitWorth.js';
 import type { Core } from './core.js';
+import { type MadeReport, type MadeReportAsk, makeReport } from './makeReport.js';
 import { WorkerLine } from './workerLine.js';
 
 /** In this thread a long answer is worked off in slices of so long [ms]. */
@@ -80,6 +81,15 @@ export class Questions {
     const forget = () => this.worths.delete(key);
     answer.then(snapshot === null ? () => undefined : forget, forget);
     return answer;
+  }
+
+  /** A maintenance report from the local store, which is read beside the daemon. */
+  async report(unit: UnitDefinition, ask: MadeReportAsk): Promise<MadeReport> {
+    if (this.slow === null) {
+      await setImmediate();
+      return makeReport(unit, ask);
+    }
+    return (await this.slow.ask({ kind: 'report', unit: unit.id, ask })) as MadeReport;
   }
 
   async stop(): Promise<void> {

@@ -15,6 +15,7 @@ import { alarmRoutes } from './routes/alarms.js';
 import { historyRoutes } from './routes/history.js';
 import { offerRoutes } from './routes/offers.js';
 import { planRoutes } from './routes/plan.js';
+import { reportRoutes } from './routes/report.js';
 import { scheduleRoutes } from './routes/schedule.js';
 import { statusRoutes } from './routes/status.js';
 import { streamRoutes } from './routes/stream.js';
@@ -175,6 +176,7 @@ export async function createHttpApp(
         scheduleRoutes,
         historyRoutes,
         watchRoutes,
+        reportRoutes,
         alarmRoutes,
         streamRoutes,
       ]) {

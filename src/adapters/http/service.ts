@@ -19,6 +19,15 @@ export type AlarmAnswer =
   | { readonly accepted: true; readonly command: AlarmCommand; readonly entry: AlarmEntry | null }
   | { readonly accepted: false; readonly fault: CommandFault };
 
+/** A maintenance report that is asked for. */
+export interface ReportQuestion {
+  readonly from_ms: number;
+  readonly to_ms: number;
+  readonly format: 'html' | 'json' | 'csv';
+  /** Of csv. */
+  readonly table: 'runs' | 'findings' | 'indicators' | 'thermocouples' | 'events';
+}
+
 export interface UnitNow {
   readonly unit: UnitDefinition;
   readonly estimate: Estimate | null;
@@ -89,6 +98,8 @@ export interface PlantService {
     kind: Mode | undefined,
     most: number,
   ): CycleRecord[];
+  /** The report as text, and the hash of its style for the policy of the browser. */
+  bedReport(unit: string, question: ReportQuestion): Promise<{ text: string; style: string }>;
   /** Alarms and alerts that are shown, and those held back: shelved, suppressed, out of service. */
   standing(unit?: string): AlarmEntry[];
   heldBack(unit?: string): AlarmEntry[];

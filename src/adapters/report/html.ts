@@ -3,7 +3,7 @@ import type { ReportData } from '../../core/report/reportData.js';
 import { cycleTotals } from '../../core/report/totals.js';
 import { escapeText as text } from './escape.js';
 import { figures } from './figures.js';
-import { STYLE } from './style.js';
+import { STYLE, STYLE_HASH } from './style.js';
 import { cycleTable, eventTable, indicatorTable, sensorTable } from './tables.js';
 
 const LEVELS: Readonly<Record<Finding['level'], string>> = {
@@ -22,7 +22,7 @@ export function reportHtml(data: ReportData): string {
 <html lang="en">
 <head>
 <meta charset="utf-8">
-<meta http-equiv="Content-Security-Policy" content="default-src 'none'; style-src 'unsafe-inline'; img-src data:">
+<meta http-equiv="Content-Security-Policy" content="default-src 'none'; style-src '${STYLE_HASH}'">
 <meta name="viewport" content="width=device-width, initial-scale=1">
 <title>${text(title)}</title>
 <style>${STYLE}</style>

@@ -1,3 +1,5 @@
+import { createHash } from 'node:crypto';
+
 /** One sheet for screen and paper: ink on paper, colour only for what needs attention. */
 export const STYLE = `
 :root{--ink:#1c1f21;--soft:#565d62;--rule:#c9cccc;--urgent:#a8201a;--care:#7d5200}
@@ -50,3 +52,6 @@ thead{display:table-header-group}
 @page{size:A4;margin:16mm 14mm 18mm}
 @media print{html{font-size:10.2pt}body{max-width:none;padding:0}h2{break-after:avoid}h3{break-after:avoid}.wide{overflow:visible}table{font-size:8.4pt}.page{break-before:page}}
 `.trim();
+
+/** By which a browser's policy lets this one sheet through and no other. */
+export const STYLE_HASH = `sha256-${createHash('sha256').update(STYLE).digest('base64')}`;

@@ -3,9 +3,11 @@ import type {
   HealthPart,
   HistoryPoint,
   PlantService,
+  ReportQuestion,
   ServiceMessage,
   UnitNow,
 } from '../../../src/adapters/http/service.js';
+import { STYLE_HASH } from '../../../src/adapters/report/style.js';
 import { inputOf, isFault, readCommand } from '../../../src/core/alarm/command.js';
 import {
   type AlarmEntry,
@@ -227,6 +229,14 @@ export class ScriptedPlant implements PlantService {
         Date.parse(one.from) <= to_ms,
     );
     return within.slice(-most);
+  }
+
+  /** Reports asked for, as they came. */
+  readonly reportsAsked: ReportQuestion[] = [];
+
+  async bedReport(_unit: string, question: ReportQuestion) {
+    this.reportsAsked.push(question);
+    return { text: `report as ${question.format}`, style: STYLE_HASH };
   }
 
   failPlan: Error | null = null;

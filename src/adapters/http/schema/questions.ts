@@ -91,6 +91,18 @@ export const cyclesQuery = z.strictObject({
     .optional(),
 });
 
+export const reportQuery = z.strictObject({
+  from: instant.optional(),
+  to: instant.optional(),
+  format: z.enum(['html', 'json', 'csv'], { error: 'html, json or csv' }).optional(),
+  table: z
+    .enum(['runs', 'findings', 'indicators', 'thermocouples', 'events'], {
+      error: 'runs, findings, indicators, thermocouples or events',
+    })
+    .describe('of csv')
+    .optional(),
+});
+
 export const eventsQuery = z.strictObject({
   unit: unitName.optional(),
   from: instant.optional(),
