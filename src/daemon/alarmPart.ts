@@ -102,12 +102,6 @@ export class AlarmPart {
     return inOrder(this.entries(unit).filter(({ state }) => isHeldBack(state)));
   }
 
-  /** False for what nobody is to be told of now. */
-  isTold(event: WatchEvent): boolean {
-    const entry = this.options.history.alarms.entry(event.id);
-    return entry === null || !isHeldBack(entry.state);
-  }
-
   /**
    * Follows a command of whoever gave it, or says what is wrong with it.
    * @param unit the unit it was sent to; null: any

@@ -3,7 +3,6 @@ import type { HealthPart } from '../adapters/http/service.js';
 import { EventTeller } from '../adapters/mqtt/eventTeller.js';
 import { WebhookForwarder } from '../adapters/notify/webhookForwarder.js';
 import type { NotifyConfig, WebhookConfig } from '../config/site.js';
-import type { WatchEvent } from '../core/watch/event.js';
 import type { Log } from '../log.js';
 import type { DaemonClock } from './clock.js';
 import type { Counters } from './counters.js';
@@ -20,8 +19,6 @@ export interface NotifyPartOptions {
   readonly mqtt_prefix: string;
   /** Publishes over MQTT; resolves once the broker has it. */
   deliver(topic: string, payload: string): Promise<void>;
-  /** False for what nobody is to be told of now, as an alarm that is shelved. */
-  isTold(event: WatchEvent): boolean;
 }
 
 interface Receiver {
@@ -62,19 +59,19 @@ export class NotifyPart {
   }
 
   private makeTeller(): EventTeller {
-    const { history, counters, mqtt_prefix, deliver, isTold } = this.options;
+    const { history, counters, mqtt_prefix, deliver } = this.options;
     const queue = history.eventQueue('mqtt');
     queue.start();
     const count = (name: 'events_told' | 'events_told_failures') => counters.add(name);
-    return new EventTeller({ prefix: mqtt_prefix, queue, deliver, isTold, count });
+    return new EventTeller({ prefix: mqtt_prefix, queue, deliver, count });
   }
 
   private receiver(config: WebhookConfig): Receiver {
-    const { site, history, clock, counters, notices, log, isTold } = this.options;
+    const { site, history, clock, counters, notices, log } = this.options;
     const queue = history.eventQueue(`webhook ${config.id}`);
     queue.start();
     const forwarder = new WebhookForwarder({
-      ...{ config, site, queue, isTold },
+      ...{ config, site, queue },
       now: () => clock.now(),
       count: (name, by) => counters.add(name, by),
       down: (reason) =>

@@ -4,7 +4,8 @@ import { type AlarmEntry, entryOf, type RecordedTransition } from '../../core/al
 import type { Annunciation } from '../../core/alarm/figures.js';
 import { type AlarmId, covers, readId } from '../../core/alarm/ids.js';
 import { type AlarmState, isForgettable, isHeldBack, NORMAL } from '../../core/alarm/state.js';
-import { type AlarmInput, type AlarmTransition, stepAlarm } from '../../core/alarm/step.js';
+import { type AlarmInput, type AlarmStep, stepAlarm } from '../../core/alarm/step.js';
+import { tellingOf } from '../../core/alarm/telling.js';
 import type { Mode } from '../../core/definitions.js';
 import type { EventKind, WatchEvent } from '../../core/watch/event.js';
 import { KIND_CLASSES } from '../../core/watch/kinds.js';
@@ -77,7 +78,7 @@ export class Alarms {
     const isShown = state !== 'normal' && !isHeldBack(state);
     if (raised && !suppressed && heldByDesign(event.kind, mode, isShown))
       row = this.step(row, { kind: 'suppressed' }, time_ms);
-    this.step(row, { kind: raised ? 'raised' : 'returned' }, time_ms);
+    this.step(row, { kind: raised ? 'raised' : 'returned' }, time_ms, event);
   }
 
   /**
@@ -129,7 +130,7 @@ export class Alarms {
     this.database.pragma('synchronous = FULL');
     try {
       const moved = row;
-      this.database.transaction(() => this.store(moved, step.state, step.transition))();
+      this.database.transaction(() => this.store(moved, step))();
     } catch (thrown) {
       throw storeFailure(`recording what ${command.who} did to ${command.id}`, thrown);
     } finally {
@@ -205,19 +206,22 @@ export class Alarms {
     });
   }
 
-  private step(row: AlarmRow, input: AlarmInput, time_ms: number): AlarmRow {
+  private step(row: AlarmRow, input: AlarmInput, time_ms: number, event?: WatchEvent): AlarmRow {
     const timing = { time_ms, latching: this.isLatching(row.kind) };
-    const { state, transition } = stepAlarm(JSON.parse(row.alarm) as AlarmState, input, timing);
-    return this.store(row, state, transition);
+    return this.store(row, stepAlarm(JSON.parse(row.alarm) as AlarmState, input, timing), event);
   }
 
-  private store(row: AlarmRow, state: AlarmState, transition: AlarmTransition | null): AlarmRow {
+  /** @param event that brought the step about; absent: none did */
+  private store(row: AlarmRow, { state, transition }: AlarmStep, event?: WatchEvent): AlarmRow {
     const stored = { ...row, alarm: JSON.stringify(state) };
-    const { drop, put, record } = this.statements;
+    const { drop, put, record, tell } = this.statements;
     if (isForgettable(state)) drop.run(row.id);
     else put.run({ ...stored, state: state.state, until: state.shelf?.until_ms ?? null });
     const { id, unit, kind } = row;
     if (transition) record.run({ ...transition, id, unit, kind });
+    const of = event ?? (row.event === null ? null : (JSON.parse(row.event) as WatchEvent));
+    const told = tellingOf(JSON.parse(row.alarm) as AlarmState, transition, of);
+    if (told !== null) tell.run(Date.parse(told.time), JSON.stringify(told));
     return stored;
   }
 
@@ -256,6 +260,7 @@ function statementsOf(database: Database) {
       `INSERT INTO alarm_transitions (id, unit, kind, time, what, before, after, who, why)
        VALUES (@id, @unit, @kind, @time_ms, @what, @before, @after, @who, @why)`,
     ),
+    tell: database.prepare('INSERT INTO tellings (time, json) VALUES (?, ?)'),
   };
 }
 

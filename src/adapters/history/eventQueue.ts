@@ -1,17 +1,15 @@
-import type { WatchEvent } from '../../core/watch/event.js';
+import type { ToldEvent } from '../../core/alarm/telling.js';
 import type { Database } from './database.js';
-import type { Sequence } from './sequence.js';
 
 /**
- * Events behind a named cursor, in the order in which they were made. A cursor that was never there
- * begins at the present: a new receiver is not told the whole history.
+ * What is told outside, behind a named cursor, in the order in which it was made. A cursor that was
+ * never there begins at the present: a new receiver is not told the whole history.
  */
 export class EventQueue {
   private readonly name: string;
 
   constructor(
     private readonly database: Database,
-    private readonly sequence: Sequence,
     receiver: string,
   ) {
     this.name = `events to ${receiver}`;
@@ -21,14 +19,14 @@ export class EventQueue {
   start(): void {
     this.database
       .prepare('INSERT OR IGNORE INTO cursors (name, value) VALUES (?, ?)')
-      .run(this.name, this.sequence.next - 1);
+      .run(this.name, this.newest);
   }
 
-  read(most: number): { seq: number; event: WatchEvent }[] {
+  read(most: number): { seq: number; event: ToldEvent }[] {
     const rows = this.database
-      .prepare('SELECT seq, json FROM events WHERE seq > ? ORDER BY seq LIMIT ?')
-      .all(this.cursor, most) as { seq: number; json: string }[];
-    return rows.map(({ seq, json }) => ({ seq, event: JSON.parse(json) as WatchEvent }));
+      .prepare('SELECT no, json FROM tellings WHERE no > ? ORDER BY no LIMIT ?')
+      .all(this.cursor, most) as { no: number; json: string }[];
+    return rows.map(({ no, json }) => ({ seq: no, event: JSON.parse(json) as ToldEvent }));
   }
 
   moveTo(seq: number): void {
@@ -39,13 +37,21 @@ export class EventQueue {
 
   get backlog(): number {
     return this.database
-      .prepare('SELECT count(*) FROM events WHERE seq > ?')
+      .prepare('SELECT count(*) FROM tellings WHERE no > ?')
       .pluck()
       .get(this.cursor) as number;
   }
 
   private get cursor(): number {
     const found = this.database.prepare('SELECT value FROM cursors WHERE name = ?').pluck();
-    return (found.get(this.name) as number | undefined) ?? this.sequence.next - 1;
+    return (found.get(this.name) as number | undefined) ?? this.newest;
+  }
+
+  /** Number of the newest that ever was, be it deleted since. */
+  private get newest(): number {
+    const found = this.database
+      .prepare("SELECT seq FROM sqlite_sequence WHERE name = 'tellings'")
+      .pluck();
+    return (found.get() as number | undefined) ?? 0;
   }
 }

@@ -96,10 +96,9 @@ export class History {
     return this.parts.watch;
   }
 
-  /** Events for a receiver that keeps its own place among them. */
+  /** What is told outside, for a receiver that keeps its own place in it. */
   eventQueue(receiver: string): EventQueue {
-    const { database, sequence } = this.parts;
-    return new EventQueue(database, sequence, receiver);
+    return new EventQueue(this.parts.database, receiver);
   }
 
   /** Runs `write` in one transaction; SQLite's failures become errors of the catalogue. */

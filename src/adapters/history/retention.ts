@@ -41,7 +41,7 @@ export function applyRetention(
     const offers = remove(database, 'offers', end) + removeSurplusOffers(database);
     const events = remove(database, 'events', end);
     const cycles = remove(database, 'cycles', end);
-    remove(database, 'alarm_transitions', end);
+    for (const table of ['alarm_transitions', 'tellings']) remove(database, table, end);
     estimates += thinEstimates(database, store, now_ms, limit);
     return { estimates, events, cycles, offers, not_forwarded };
   })();

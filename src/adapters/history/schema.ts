@@ -77,4 +77,14 @@ export const HISTORY_SCHEMA = [
      kind TEXT NOT NULL, no INTEGER NOT NULL, json TEXT NOT NULL, UNIQUE (unit, "from"));
    CREATE TABLE watch (
      unit TEXT NOT NULL, time INTEGER NOT NULL, content BLOB NOT NULL, PRIMARY KEY (unit, time));`,
+  // What receivers outside are told, frozen as it is made; their cursors count on from where they were,
+  // and what waited for one of them waits on. What stands counts as told: a return too many does no harm.
+  `CREATE TABLE tellings (
+     no INTEGER PRIMARY KEY AUTOINCREMENT, time INTEGER NOT NULL, json TEXT NOT NULL);
+   CREATE INDEX tellings_by_time ON tellings (time);
+   INSERT INTO sqlite_sequence (name, seq)
+     SELECT 'tellings', coalesce(max(value), 0) FROM cursors WHERE name LIKE 'events to %';
+   INSERT INTO tellings (no, time, json) SELECT seq, time, json FROM events
+     WHERE seq > (SELECT min(value) FROM cursors WHERE name LIKE 'events to %') ORDER BY seq;
+   UPDATE alarms SET alarm = json_set(alarm, '$.told', json(iif(alarm ->> '$.active', 'true', 'false')));`,
 ];

@@ -1,8 +1,8 @@
-import type { WatchEvent } from '../../core/watch/event.js';
+import type { ToldEvent } from '../../core/alarm/telling.js';
 
-/** Events in the order in which they were made, and how far the broker has them; kept on disk. */
+/** What is told, in the order in which it was made, and how far the broker has them; kept on disk. */
 export interface ToldEvents {
-  read(most: number): readonly { readonly seq: number; readonly event: WatchEvent }[];
+  read(most: number): readonly { readonly seq: number; readonly event: ToldEvent }[];
   moveTo(seq: number): void;
 }
 
@@ -11,8 +11,6 @@ export interface EventTellerOptions {
   readonly queue: ToldEvents;
   /** Resolves once the broker has it, else throws. */
   deliver(topic: string, payload: string): Promise<void>;
-  /** False: not told, as for an alarm that is shelved. */
-  isTold(event: WatchEvent): boolean;
   count(name: 'events_told' | 'events_told_failures'): void;
 }
 
@@ -21,7 +19,7 @@ const RETRY_MS = 2000;
 const ITEMS = 50;
 
 /**
- * Tells each alarm and alert as a message of its own on `PREFIX/UNIT/event` (QoS 1, not retained), one
+ * Tells what becomes of alarms and alerts, each as a message of its own on `PREFIX/UNIT/event` (QoS 1, not retained), one
  * by one in order, at least once, behind a cursor on disk: a broker that was away gets what happened
  * meanwhile. Whoever wants only what stands now reads the retained list.
  */
@@ -53,15 +51,13 @@ export class EventTeller {
   }
 
   private async run(): Promise<void> {
-    const { queue, deliver, isTold, prefix, count } = this.options;
+    const { queue, deliver, prefix, count } = this.options;
     try {
       const page = queue.read(ITEMS);
       for (const { seq, event } of page) {
         if (!this.running) return;
-        if (isTold(event)) {
-          await deliver(`${prefix}/${event.unit}/event`, JSON.stringify(event));
-          count('events_told');
-        }
+        await deliver(`${prefix}/${event.unit}/event`, JSON.stringify(event));
+        count('events_told');
         // Stopped meanwhile, the queue may be closed: the event is told again after the next start.
         if (!this.running) return;
         queue.moveTo(seq);

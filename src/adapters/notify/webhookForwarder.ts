@@ -1,5 +1,5 @@
 import type { WebhookConfig } from '../../config/site.js';
-import type { WatchEvent } from '../../core/watch/event.js';
+import type { ToldEvent } from '../../core/alarm/telling.js';
 import { reasonOf } from '../../errors.js';
 import { signedHeaders } from './signature.js';
 
@@ -15,10 +15,10 @@ export type WebhookCount = (typeof WEBHOOK_COUNTS)[number];
 
 export interface QueuedEvent {
   readonly seq: number;
-  readonly event: WatchEvent;
+  readonly event: ToldEvent;
 }
 
-/** Events in the order in which they were made, and how far this receiver has them; kept on disk. */
+/** What is told, in the order in which it was made, and how far this receiver has it; kept on disk. */
 export interface EventQueue {
   /** Events behind the cursor, oldest first, at most `most`. */
   read(most: number): readonly QueuedEvent[];
@@ -38,8 +38,6 @@ export interface WebhookOptions {
   up(): void;
   /** An event that the receiver refuses for good, and what it answered. */
   refused(reason: string): void;
-  /** False: not told, as for an alarm that is shelved. Default: all are. */
-  isTold?(event: WatchEvent): boolean;
   /** First pause after a failure [ms]; it doubles up to 5 min. Default 1000. */
   readonly retry_least_ms?: number;
 }
@@ -53,7 +51,7 @@ const REFUSED = new Set([400, 406, 409, 410, 413, 415, 422]);
 const RANK = { high: 0, medium: 1, low: 2 } as const;
 
 /**
- * Posts alarms and alerts to one receiver, one by one in order, at least once, behind a cursor on
+ * Posts what is told of alarms and alerts to one receiver, one by one in order, at least once, behind a cursor on
  * disk: a receiver that is away gets all that happened meanwhile, up to `oldest_h`, and knows what it
  * has by `webhook-id`. Any 2xx is delivered. What the receiver refuses as such is set aside; all else
  * (no connection, no answer in time, a redirect, 401, 404, 429, 5xx) is tried again with growing pauses. It runs
@@ -129,14 +127,13 @@ export class WebhookForwarder {
     return page.length === ITEMS;
   }
 
-  private isWanted(event: WatchEvent): boolean {
-    const { config, isTold } = this.options;
+  private isWanted(event: ToldEvent): boolean {
+    const { config } = this.options;
     if (!config.send.includes(event.class)) return false;
-    if (RANK[event.priority] > RANK[config.least_priority]) return false;
-    return isTold?.(event) ?? true;
+    return RANK[event.priority] <= RANK[config.least_priority];
   }
 
-  private async deliver(seq: number, event: WatchEvent): Promise<void> {
+  private async deliver(seq: number, event: ToldEvent): Promise<void> {
     const { config, site, count, now, refused } = this.options;
     const body = JSON.stringify({
       type: `${event.class}.${event.transition}`,

@@ -56,6 +56,8 @@ export interface AlarmState {
   readonly unseen: boolean;
   /** A rule of the design holds it back now, be it behind a shelf or out of service. */
   readonly suppressed: boolean;
+  /** It was shown as unacknowledged, which is told outside, and its condition has not returned since. */
+  readonly told: boolean;
   /** When it was last shown as unacknowledged; null where it never was since normal. */
   readonly raised_ms: number | null;
   /** When it came into its state; null before the first transition. */
@@ -71,6 +73,7 @@ export const NORMAL: AlarmState = {
   latched: false,
   unseen: false,
   suppressed: false,
+  told: false,
   raised_ms: null,
   since_ms: null,
   acknowledged: null,

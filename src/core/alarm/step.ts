@@ -162,6 +162,7 @@ function move(
     ...next,
     state: after,
     unseen: isHeldBack(after) && next.unseen,
+    told: next.told || isShownAnew,
     latched: next.latched && after !== 'normal',
     since_ms: after === before ? next.since_ms : time_ms,
     raised_ms: isShownAnew ? time_ms : after === 'normal' ? null : next.raised_ms,
@@ -192,7 +193,7 @@ function raise(alarm: AlarmState, time_ms: number): AlarmStep {
 
 function giveBack(alarm: AlarmState, { time_ms, latching }: AlarmTiming): AlarmStep {
   if (!alarm.active) return still(alarm);
-  const next = { ...alarm, active: false };
+  const next = { ...alarm, active: false, told: false };
   const to = (state: AlarmStateName, latched = false) =>
     put({ ...next, state, latched }, alarm, 'returned', time_ms, ITSELF);
   if (isHeldBack(alarm.state)) return to(alarm.state, alarm.latched);

@@ -200,6 +200,81 @@ describe('rules of the design', () => {
   });
 });
 
+describe('what is told outside', () => {
+  /** What a receiver finds behind its cursor. */
+  function listening(rules?: Parameters<typeof opened>[0]) {
+    const made = opened(rules);
+    const queue = made.history.eventQueue('r');
+    queue.start();
+    const told = () =>
+      queue.read(99).map(({ event }) => `${event.transition} ${event.again ?? '-'}`);
+    return { ...made, queue, told };
+  }
+  const ID = 'u/front_spread/hot';
+
+  it('is what is shown anew, by raise, shelf or service, with when it came up', () => {
+    const { alarms, raise, say, queue, told } = listening();
+    raise('front_spread', T);
+    say('acknowledge', ID, T + 1);
+    say('shelve', ID, T + 2);
+    say('unshelve', ID, T + 3);
+    say('shelve', ID, T + 4, 1);
+    alarms.passTime(T + 4 + H);
+    say('out_of_service', ID, T + 5 + H);
+    say('return_to_service', ID, T + 6 + H);
+    expect(told()).toEqual([
+      ...['raised -', 'raised unshelved', 'raised shelf_ran_out', 'raised returned_to_service'],
+    ]);
+    const at = (ms: number) => new Date(ms).toISOString();
+    expect(queue.read(9)[1]!.event).toMatchObject({
+      ...{ id: ID, again: 'unshelved', time: at(T + 3), raised_at: at(T) },
+      message: `Shown again, as it was taken off the shelf; raised at ${at(T)}: it is so`,
+    });
+  });
+
+  it('is what a rule had held back, once the rule has ended', () => {
+    const { alarms, raise, told } = listening();
+    alarms.scan('u', 'stand', T);
+    raise('string_flow_uneven', T + 1);
+    expect(told()).toEqual([]);
+    alarms.scan('u', 'charge', T + 2);
+    expect(told()).toEqual(['raised released']);
+  });
+
+  it('is the return of what was told, also while it is held back, and of nothing else', () => {
+    const { raise, giveBack, say, told } = listening();
+    raise('front_spread', T);
+    say('shelve', ID, T + 1);
+    giveBack('front_spread', T + 2);
+    expect(told()).toEqual(['raised -', 'returned -']);
+    // On the shelf still: nobody is told of it, nor that it goes again.
+    raise('front_spread', T + 3);
+    giveBack('front_spread', T + 4);
+    expect(told()).toHaveLength(2);
+    raise('front_spread', T + 5);
+    say('unshelve', ID, T + 6);
+    giveBack('front_spread', T + 7);
+    expect(told().slice(2)).toEqual(['raised unshelved', 'returned -']);
+  });
+
+  it('of an older file waits on for each receiver, and what stood there is told to return', () => {
+    const { folder, history, raise } = opened();
+    raise('front_spread', T);
+    history.stop();
+    const old = new SQLite(join(folder, 'history.sqlite'));
+    old.exec(`DROP TABLE tellings; UPDATE alarms SET alarm = json_remove(alarm, '$.told');
+      INSERT INTO cursors VALUES ('events to r', 0), ('events to s', 40)`);
+    old.pragma('user_version = 4');
+    old.close();
+    const again = opened(undefined, folder);
+    const [r, s] = ['r', 's'].map((name) => again.history.eventQueue(name));
+    expect([r!.backlog, s!.backlog]).toEqual([1, 0]);
+    again.giveBack('front_spread', T + 1);
+    expect(r!.read(9).map(({ event }) => event.transition)).toEqual(['raised', 'returned']);
+    expect(s!.read(9).map(({ event }) => event.transition)).toEqual(['returned']);
+  });
+});
+
 describe('what the configuration says', () => {
   const named = { latching: [], out_of_service: ['sensor_rejected/hot_a_1', 'gas_lost'] };
 

@@ -119,9 +119,8 @@ describe('cycles', () => {
     const folder = temporaryFolder('cycles');
     opened(folder).stop();
     const old = new SQLite(join(folder, 'history.sqlite'));
-    const version = Number(old.pragma('user_version', { simple: true }));
-    old.exec('DROP TABLE cycles; DROP TABLE watch;');
-    old.pragma(`user_version = ${version - 1}`);
+    old.exec('DROP TABLE cycles; DROP TABLE watch; DROP TABLE tellings;');
+    old.pragma('user_version = 3');
     old.close();
     const history = opened(folder);
     expect(history.cycles.add(RUNS[0]!)).toBe(true);

@@ -42,7 +42,7 @@ function linkTo(url: string): MqttLink {
 }
 
 describe('events told over MQTT', () => {
-  it('wait for a broker that is away, then come in order, none lost, none of what is held back', async () => {
+  it('wait for a broker that is away, then come in order, none lost', async () => {
     const port = await freePort();
     const link = linkTo(`mqtt://127.0.0.1:${port}`);
     const queue = queueOf(120);
@@ -50,7 +50,6 @@ describe('events told over MQTT', () => {
     const teller = new EventTeller({
       ...{ prefix: 'p', queue },
       deliver: (topic, payload) => link.deliver(topic, payload, 5000),
-      isTold: ({ subject }) => subject !== 's7',
       count: (name) => counts[name]++,
     });
     link.start();
@@ -71,13 +70,11 @@ describe('events told over MQTT', () => {
     });
     await listener.subscribeAsync('p/u/event', { qos: 1 });
     await waitFor('all to be told', () => queue.cursor === 120, 20_000);
-    const expected = Array.from({ length: 120 }, (_, i) => `p/u/event s${i + 1}`).filter(
-      (line) => !line.endsWith(' s7'),
-    );
+    const expected = Array.from({ length: 120 }, (_, i) => `p/u/event s${i + 1}`);
     // Those told before the listener had subscribed are nobody's: it is not retained.
     await waitFor('the last to come', () => came.at(-1) === expected.at(-1));
     expect(came).toEqual(expected.slice(-came.length));
-    expect(counts.events_told).toBe(119);
+    expect(counts.events_told).toBe(120);
     expect(retained).toBe(0);
   }, 40_000);
 
@@ -86,7 +83,7 @@ describe('events told over MQTT', () => {
     const tried: string[] = [];
     let refuse = true;
     const teller = new EventTeller({
-      ...{ prefix: 'p', queue, isTold: () => true, count: () => undefined },
+      ...{ prefix: 'p', queue, count: () => undefined },
       deliver: (_, payload) => {
         tried.push((JSON.parse(payload) as WatchEvent).subject);
         if (!refuse || tried.length < 2) return Promise.resolve();
