@@ -1,4 +1,5 @@
 import type { UnitDefinition } from '../definitions.js';
+import { type Ageing, ageViews, startAgeing } from './ageing.js';
 import {
   INDICATOR_KINDS,
   type Indicator,
@@ -51,10 +52,10 @@ export const INDICATORS: readonly Indicator<unknown>[] = ALL.toSorted(
  * Counts up where the state of an indicator changes its shape: states of another version are begun
  * anew, baselines included, and the rest of the checkpoint is kept.
  */
-export const INDICATORS_VERSION = 1;
+export const INDICATORS_VERSION = 2;
 
-/** State of each indicator by kind, made when it is first stepped. Plain and bounded. */
-export type IndicatorStates = Partial<Record<IndicatorKind, unknown>>;
+/** State of each indicator by kind, made when it is first stepped, and how old their values are. Plain, bounded. */
+export type IndicatorStates = Partial<Record<IndicatorKind, unknown>> & { ageing?: Ageing };
 
 const shipped = new WeakMap<UnitDefinition, IndicatorsDefinition>();
 
@@ -70,16 +71,19 @@ export function indicatorsOf(unit: UnitDefinition): IndicatorsDefinition {
 }
 
 /**
- * Steps all indicators over one scan.
+ * Steps all indicators over one scan; a `normal` that rests on nothing new is left open (ageViews).
  *
  * @param states changed in place
  * @returns the views of all subjects, in the order of `INDICATORS`
  */
 export function stepIndicators(states: IndicatorStates, input: IndicatorInput): IndicatorView[] {
   const watching = indicatorsOf(input.unit);
-  return INDICATORS.flatMap((indicator) => {
+  const views = INDICATORS.flatMap((indicator) => {
     states[indicator.kind] ??= indicator.start(input.model);
     const rule = watching.rules[indicator.kind];
     return indicator.step(states[indicator.kind], rule, watching, input);
   });
+  states.ageing ??= startAgeing();
+  const { mode } = input.taken.conditions;
+  return ageViews(states.ageing, views, { mode, time_ms: input.time_ms, dt_s: input.dt_s });
 }

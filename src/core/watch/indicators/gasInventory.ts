@@ -2,7 +2,8 @@ import type { Mode } from '../../definitions.js';
 import { meanTemperatures } from '../../track/storeEstimate.js';
 import type { StoreState } from '../../track/storeTracker.js';
 import type { UnitModel } from '../../unitModel.js';
-import { type BaselineState, baseline, learnBaseline, startBaseline } from '../baseline.js';
+import { type BaselineState, learnBaseline, startBaseline } from '../baseline.js';
+import type { Healthy } from '../follow.js';
 import type {
   Indicator,
   IndicatorInput,
@@ -11,21 +12,29 @@ import type {
   IndicatorsDefinition,
   IndicatorView,
 } from '../indicator.js';
-import { decisionAt, stepSequential } from '../sequential.js';
+import { decisionAt } from '../sequential.js';
 import { channelOf } from './pressureDrop.js';
 import { type Followed, remembered, shownAs, stampOf, startFollowed, withSigma } from './shown.js';
+import { beginAnew, healthyBy, testSide } from './sides.js';
 
 /** An hour in one mode makes one value, after the pressures have settled [s]. */
 const HOUR_S = 3600;
 const SETTLE_S = 900;
+/** Of fewer scans no hour is made. */
+const LEAST_SCANS = 3;
 /**
  * One sigma of an hour's mean in ln: a pressure transmitter's drift and what ambient does to the pipes;
  * the scatter that the plant itself shows is taken where it is more.
  */
 const VALUE_SIGMA = 0.003;
 const RULE = { floor: 0.002, enough: 0.003, least: 3 };
-/** ln of the pressures of a sound plant against those configured, as long as nothing is learned. */
+/**
+ * ln of the pressures of a sound plant against those configured, one sigma, as long as nothing is
+ * learned: those are the working ones. While it stands a loop may be let down, and in a closed one they
+ * move with the temperatures of the beds.
+ */
 const PRIOR_SIGMA = 0.05;
+const WIDE_SIGMA = 0.2;
 
 const MODES = ['charge', 'stand', 'discharge'] as const;
 /** `held`: pressures are kept, gas goes to and from a buffer. `closed`: the loop keeps its gas. */
@@ -49,7 +58,11 @@ export interface GasInventoryState {
   /** Sum of the mean ln pressure [-]. */
   sum: number;
   readonly laws: Record<Law, Record<Mode, Learned>>;
-  readonly followed: Followed;
+  followed: Followed;
+  /** Mode, and ln of pressures against those configured, of the newest value. */
+  newest: { readonly mode: Mode; readonly lnPressure: number } | null;
+  /** Scans, after pressures had settled, in which not all of them were read. */
+  unread: number;
 }
 
 /**
@@ -68,11 +81,20 @@ export const GAS_INVENTORY: Indicator<GasInventoryState> = {
     sum: 0,
     laws: { held: byMode(), closed: byMode() },
     followed: startFollowed(),
+    newest: null,
+    unread: 0,
   }),
   step(state, rule, watching, input) {
     const channels = pressuresOf(input.model);
+    const from_ms = watching.baseline_from_ms;
+    if (beginAnew(baselinesOf(state), [state.followed.test], from_ms))
+      Object.assign(state, {
+        laws: { held: byMode(from_ms), closed: byMode(from_ms) },
+        followed: startFollowed(),
+        newest: null,
+      });
     if (channels.length > 0) follow(state, channels, rule, watching, input);
-    const stamp = `${stampOf(state.followed)} ${rule.limit}`;
+    const stamp = `${stampOf(state.followed)} ${state.unread} ${rule.limit}`;
     return [
       remembered(state, stamp, () => view(state, input.model.unit.id, channels.length, rule)),
     ];
@@ -85,12 +107,13 @@ function view(
   channels: number,
   rule: IndicatorRule,
 ): IndicatorView {
-  const { followed } = state;
+  const { followed, newest } = state;
   const law = lawOf(state);
-  const learned = MODES.some((mode) => state.laws[law][mode].healthy.kept);
+  const learned = newest !== null && state.laws[law][newest.mode].healthy.kept;
   let reason: IndicatorReason | null = null;
   if (channels === 0) reason = 'not_instrumented';
-  else if (followed.test.count > 0 && !learned) reason = 'learning';
+  else if (newest !== null && isBeyond(newest.lnPressure)) reason = 'too_uncertain';
+  else if (newest !== null && !learned) reason = 'learning';
   return shownAs({
     kind: 'gas_inventory',
     subject: unit,
@@ -100,19 +123,25 @@ function view(
     healthy: channels === 0 ? null : 0,
     healthy_from: learned ? 'learned' : 'configured',
     reason,
-    sentence: sentence(unit, followed, law, channels, rule),
+    sentence: sentence(unit, state, law, channels, rule),
   });
 }
 
-const byMode = (): Record<Mode, Learned> => ({
-  charge: startLearned(),
-  stand: startLearned(),
-  discharge: startLearned(),
+const byMode = (begun_ms: number | null = null): Record<Mode, Learned> => ({
+  charge: startLearned(begun_ms),
+  stand: startLearned(begun_ms),
+  discharge: startLearned(begun_ms),
 });
 
-function startLearned(): Learned {
-  return { healthy: startBaseline(), first: 0, sum: 0, squares: 0 };
+function startLearned(begun_ms: number | null): Learned {
+  return { healthy: { ...startBaseline(), begun_ms }, first: 0, sum: 0, squares: 0 };
 }
+
+const baselinesOf = ({ laws }: GasInventoryState): BaselineState[] =>
+  LAWS.flatMap((law) => MODES.map((mode) => laws[law][mode].healthy));
+
+/** Pressures that no sound plant has: of a transmitter or a configuration that is wrong, never learned. */
+const isBeyond = (lnPressure: number): boolean => lnPressure > 2 * WIDE_SIGMA;
 
 interface Pressure {
   readonly channel: number;
@@ -159,9 +188,11 @@ function follow(
   if (Number.isFinite(mean)) {
     state.scans++;
     state.sum += mean;
-  }
+  } else state.unread++;
   if (state.hour_s < HOUR_S) return;
-  if (state.scans > 0) take(state, state.sum / state.scans, channels, rule, watching, input);
+  // A mean of a few scans would be told with the sigma of an hour.
+  if (state.scans >= LEAST_SCANS)
+    take(state, state.sum / state.scans, channels, rule, watching, input);
   state.hour_s = 0;
   state.scans = 0;
   state.sum = 0;
@@ -193,6 +224,15 @@ function lawOf({ laws }: GasInventoryState): Law {
   return scatter('closed') < scatter('held') ? 'closed' : 'held';
 }
 
+/**
+ * Healthy ln of a law in a mode. Pressures above what the configuration allows are no norm, and neither is
+ * that bound, as it is not on the safe side: put right, they would count as lost. The configured ones stay.
+ */
+function healthyOf({ healthy }: Learned, configured: Healthy): Healthy {
+  const known = healthyBy(healthy, { configured, baseline: RULE });
+  return known.sigma === 0 && known.value > configured.value ? configured : known;
+}
+
 function take(
   state: GasInventoryState,
   lnPressure: number,
@@ -202,34 +242,39 @@ function take(
   input: IndicatorInput,
 ): void {
   const mode = state.mode as Mode;
-  const values = { held: lnPressure, closed: lnPressure + lnContents(input, channels) };
-  const law = lawOf(state);
-  const { healthy, sum, squares } = state.laws[law][mode];
-  const learned = healthy.count >= 2 ? baseline(healthy, RULE) : null;
+  const ln = lnContents(input, channels);
+  const values = { held: lnPressure, closed: lnPressure + ln };
+  // With less than two values it is not known which law it is, and only pressures are configured.
+  const law = state.laws.held[mode].healthy.count < 2 ? 'held' : lawOf(state);
+  const learned = state.laws[law][mode];
+  const { healthy, sum, squares } = learned;
   const { followed } = state;
   followed.decision = decisionAt(in_control_d, HOUR_S);
-  // Without anything learned only the configured pressures are there to hold against.
-  const healthyOne = learned ?? { value: 0, sigma: PRIOR_SIGMA };
-  const value = (learned === null ? lnPressure : values[law]) - healthyOne.value;
+  const known = healthyOf(learned, {
+    value: law === 'held' ? 0 : ln,
+    sigma: law === 'held' && mode !== 'stand' ? PRIOR_SIGMA : WIDE_SIGMA,
+    from: 'configured',
+  });
   const own =
-    learned === null
+    healthy.count < 2
       ? 0
       : Math.sqrt(Math.max(0, squares - (sum * sum) / healthy.count) / healthy.count);
   const sigma = Math.max(VALUE_SIGMA, own);
-  const lost = 1 - Math.exp(value);
-  const safe = 2 * healthyOne.sigma;
-  const tested = { value: lost, sigma, healthy: safe, degraded: safe + rule.limit };
-  stepSequential(followed.test, tested, followed.decision);
+  const lost = 1 - Math.exp(values[law] - known.value);
+  const limit = { degraded: rule.limit, back: rule.limit - rule.deadband };
+  const side = { value: 0, sigma: known.sigma };
+  testSide(followed.test, { value: lost, sigma }, side, limit, followed.decision);
   Object.assign(followed, {
     value: lost,
-    sigma: Math.hypot(sigma, healthyOne.sigma),
+    sigma: Math.hypot(sigma, known.sigma),
     time_ms: input.time_ms,
   });
+  state.newest = { mode, lnPressure };
   if (followed.test.degraded || followed.test.up > 0.25 * followed.decision) return;
+  if (isBeyond(lnPressure)) return;
   for (const one of LAWS) {
     const into = state.laws[one][mode];
     if (into.healthy.kept) continue;
-    if (into.healthy.begun_ms !== baseline_from_ms) Object.assign(into, startLearned());
     const before = into.healthy.count;
     const v = { value: values[one], sigma: VALUE_SIGMA };
     learnBaseline(into.healthy, v, input.time_ms, baseline_from_ms, RULE);
@@ -243,7 +288,7 @@ function take(
 
 function sentence(
   unit: string,
-  { value, sigma, test }: Followed,
+  { followed: { value, sigma, test }, newest, unread }: GasInventoryState,
   law: Law,
   channels: number,
   rule: IndicatorRule,
@@ -251,11 +296,14 @@ function sentence(
   if (channels === 0)
     return `Unit ${unit}: no pressure is measured, so lost gas does not show here.`;
   const rests =
-    law === 'held'
+    (law === 'held'
       ? 'It rests on pressures that the plant keeps: as long as a buffer makes up for it, gas is lost unseen.'
-      : 'It rests on pressures and the mean temperatures of the gas in the beds, as in a closed loop.';
+      : 'It rests on pressures and the mean temperatures of the gas in the beds, as in a closed loop.') +
+    (unread > 0 ? ` ${unread} scans were left out so far, as not every pressure was read.` : '');
   if (value === null || sigma === null)
     return `Unit ${unit}: pressures are followed hour by hour. ${rests}`;
+  if (newest !== null && isBeyond(newest.lnPressure) && !test.degraded)
+    return `Unit ${unit}: pressures read ${Math.exp(newest.lnPressure).toFixed(2)} times the configured ones, more than a sound plant has: look at transmitters, their unit, and the configuration. ${rests}`;
   const figure = `${withSigma(100 * value, 100 * sigma, 1)} % (limit ${(100 * rule.limit).toFixed(0)} %)`;
   return test.degraded
     ? `Unit ${unit}: by its pressures it has lost ${figure} of its gas. ${rests}`

@@ -2,16 +2,27 @@ import type { Direction, StoreEnd } from '../../definitions.js';
 import { storeOutlets } from '../../track/drive.js';
 import type { StoreModel } from '../../track/storeTracker.js';
 import type { UnitState } from '../../unitState.js';
-import { type BaselineState, baseline, learnBaseline, startBaseline } from '../baseline.js';
+import { type BaselineState, learnBaseline, startBaseline } from '../baseline.js';
+import type { Healthy } from '../follow.js';
 import type {
   Indicator,
   IndicatorInput,
+  IndicatorReason,
   IndicatorRule,
   IndicatorsDefinition,
   IndicatorView,
 } from '../indicator.js';
-import { decisionAt, stepSequential } from '../sequential.js';
-import { type Followed, remembered, shownAs, stampOf, startFollowed, withSigma } from './shown.js';
+import { decisionAt } from '../sequential.js';
+import {
+  type Followed,
+  fixed,
+  remembered,
+  shownAs,
+  stampOf,
+  startFollowed,
+  withSigma,
+} from './shown.js';
+import { beginAnew, healthyBy, testSide } from './sides.js';
 
 /** Steel of pipes and plenum is warmed through after so long of a run [s]. */
 const SETTLE_S = 2700;
@@ -26,6 +37,9 @@ const VALUE_K = 1.5;
 const RULE = { floor: 1, enough: 1.2, least: 4 };
 /** Of a sound machine against its model as long as nothing is learned: points of efficiency [K]. */
 const PRIOR_K = 6;
+const HEALTHY = { configured: { value: 0, sigma: PRIOR_K }, baseline: RULE };
+/** Tests that a value goes into: it may be off to either side. The two directions share no value. */
+const SIDES = 2;
 
 const DIRECTIONS = ['charge', 'discharge'] as const;
 
@@ -66,6 +80,13 @@ export const PLATEAU: Indicator<PlateauState> = {
     stores: model.stores.map(() => ({ charge: startPlateau(), discharge: startPlateau() })),
   }),
   step(state, rule, watching, input) {
+    for (const { charge, discharge } of state.stores) {
+      for (const one of [charge, discharge]) {
+        const tests = [one.above.test, one.below.test];
+        if (beginAnew([one.healthy], tests, watching.baseline_from_ms))
+          Object.assign(one, { above: startFollowed(), below: startFollowed() });
+      }
+    }
     if (runs(state, input)) look(state, rule, watching, input);
     return input.model.stores.map((store, s) => {
       const plateaus = state.stores[s] as StorePlateaus;
@@ -137,14 +158,6 @@ function look(
   });
 }
 
-function healthyOf({ healthy }: Plateau): { value: number; sigma: number; learned: boolean } {
-  const learned = healthy.count >= 2 ? baseline(healthy, RULE) : null;
-  if (learned === null) return { value: 0, sigma: PRIOR_K, learned: false };
-  // What was learned from a machine that was at fault from the start is no norm.
-  const value = Math.min(2 * PRIOR_K, Math.max(-2 * PRIOR_K, learned.value));
-  return { value, sigma: learned.sigma, learned: true };
-}
-
 function take(
   plateau: Plateau,
   off_K: number,
@@ -152,16 +165,15 @@ function take(
   { in_control_d, baseline_from_ms }: IndicatorsDefinition,
   time_ms: number,
 ): void {
-  const known = healthyOf(plateau);
+  const known = healthyBy(plateau.healthy, HEALTHY);
   const value = off_K - known.value;
-  const healthy = 2 * known.sigma;
   for (const [followed, sign] of [
     [plateau.above, 1],
     [plateau.below, -1],
   ] as const) {
-    followed.decision = decisionAt(in_control_d, LOOKS * LOOK_S);
-    const tested = { value: sign * value, sigma: VALUE_K, healthy, degraded: healthy + rule.limit };
-    stepSequential(followed.test, tested, followed.decision);
+    followed.decision = decisionAt(in_control_d, LOOKS * LOOK_S, SIDES);
+    const limit = { degraded: sign * rule.limit, back: sign * (rule.limit - rule.deadband) };
+    testSide(followed.test, { value: off_K, sigma: VALUE_K }, known, limit, followed.decision);
     Object.assign(followed, { value, sigma: Math.hypot(VALUE_K, known.sigma), time_ms });
   }
   const { above, below } = plateau;
@@ -189,10 +201,13 @@ function view(
   );
   const worst = all.reduce((a, b) => (rank(b.followed, a.followed) > 0 ? b : a));
   const plateau = plateaus[worst.direction];
-  const known = healthyOf(plateau);
-  const reason =
-    measured.length === 0 ? 'not_instrumented' : plateau.healthy.kept ? null : 'learning';
+  const known = healthyBy(plateau.healthy, HEALTHY);
   const { followed } = worst;
+  let reason: IndicatorReason | null = null;
+  if (measured.length === 0) reason = 'not_instrumented';
+  else if (followed.test.count === 0) reason = null;
+  else if (!plateau.healthy.kept) reason = 'learning';
+  else if (isOffAlways(known, rule)) reason = 'too_uncertain';
   return shownAs({
     kind: 'plateau',
     subject: store.id,
@@ -200,11 +215,15 @@ function view(
     rule,
     followed,
     healthy: measured.length === 0 ? null : 0,
-    healthy_from: known.learned ? 'learned' : 'configured',
-    reason: followed.test.count === 0 && reason === 'learning' ? null : reason,
+    healthy_from: known.from,
+    reason,
     sentence: sentence(store.id, worst.direction, followed, known, measured.length === 0, rule),
   });
 }
+
+/** What is usual is itself beyond the limit, so that being as usual is not yet being sound. */
+const isOffAlways = ({ value }: Healthy, { limit }: IndicatorRule): boolean =>
+  Math.abs(value) > limit;
 
 function rank(a: Followed, b: Followed): number {
   return (
@@ -218,7 +237,7 @@ function sentence(
   store: string,
   direction: Direction,
   { value, sigma, test }: Followed,
-  known: { value: number; learned: boolean },
+  known: Healthy,
   blind: boolean,
   rule: IndicatorRule,
 ): string {
@@ -227,10 +246,18 @@ function sentence(
   const while_ = direction === 'charge' ? 'charging' : 'discharging';
   if (value === null || sigma === null)
     return `Store ${store}: what the machine delivers to it shows after two hours of a run.`;
-  const usual = known.learned
-    ? `than usual against the machine's model (usually ${known.value.toFixed(1)} K off it)`
-    : "than the machine's model has it";
+  const off = `${fixed(known.value, 1)} K off`;
+  const usual =
+    known.from === 'learned'
+      ? `than usual against the machine's model (usually ${off} it)`
+      : known.value === 0
+        ? "than the machine's model has it"
+        : `than the machine's model has it, taken as ${off}, the most that is believed to be sound`;
   const figure = `${withSigma(Math.abs(value), sigma, 1)} K ${value > 0 ? 'hotter' : 'colder'} ${usual}, limit ${rule.limit} K`;
   const means = test.degraded ? ' Machine, coolers or pressures are not what they were.' : '';
-  return `Store ${store}: while ${while_} gas enters it ${figure}.${means}`;
+  const always =
+    isOffAlways(known, rule) && !test.degraded
+      ? ` It has been ${off} the model from the start: more than the limit. Whether that is machine, thermometer or model as configured is open.`
+      : '';
+  return `Store ${store}: while ${while_} gas enters it ${figure}.${means}${always}`;
 }

@@ -3,6 +3,7 @@ import { meanTemperatures } from '../../track/storeEstimate.js';
 import type { StoreModel, StoreState } from '../../track/storeTracker.js';
 import type { UnitModel } from '../../unitModel.js';
 import { type BaselineState, baseline, learnBaseline, startBaseline } from '../baseline.js';
+import type { Healthy } from '../follow.js';
 import type {
   Indicator,
   IndicatorInput,
@@ -10,9 +11,10 @@ import type {
   IndicatorsDefinition,
   IndicatorView,
 } from '../indicator.js';
-import { decisionAt, stepSequential } from '../sequential.js';
+import { decisionAt } from '../sequential.js';
 import { dropSentence } from './pressureDropWords.js';
 import { type Followed, remembered, shownAs, stampOf, startFollowed } from './shown.js';
+import { beginAnew, healthyBy, testSide } from './sides.js';
 
 /** Readings are averaged over this time of even flow, and so many of these make one value [s]. */
 const BLOCK_S = 600;
@@ -22,7 +24,7 @@ const LEAST_FLOW = 0.25;
 /** Within a block it changes by at most this share of its mean. */
 const EVEN = 0.1;
 /**
- * One sigma of a value: the drop goes with the flow to the power 1.7, the meter's error changes by a
+ * One sigma of a value, in ln: the drop goes with the flow to the power 1.7, the meter's error changes by a
  * per cent over its range, and its noise over ten minutes is of that order, too.
  */
 const VALUE_SIGMA = 0.02;
@@ -32,6 +34,9 @@ const RULE = { floor: 0.015, enough: 0.018, least: 6 };
  * fraction off by 0.012 is 12 %, rough rock up to 1.45 times smooth (Macdonald et al. 1979).
  */
 const PRIOR_SIGMA = 0.2;
+const HEALTHY = { configured: { value: 0, sigma: PRIOR_SIGMA }, baseline: RULE };
+/** No bed's drop is so many times the law, nor its inverse [-]. */
+const MOST_RATIO = 1e3;
 /** Rock below freezing by less than this is neither cold nor warm [K]. */
 const FREEZING_K = 273.15;
 const EITHER_WAY_K = 3;
@@ -50,7 +55,11 @@ interface Drop {
   /** Tests while rock is below freezing, and while none is: warm hours do not undo what frost has shown. */
   readonly freezing: Followed;
   readonly thawed: Followed;
+  /** Of ln of the ratio. */
   readonly healthy: BaselineState;
+  /** Blocks left out: flow that was uneven or hardly read, and ratios that no bed has. */
+  uneven: number;
+  absurd: number;
   /** Of the block that runs: time, scans, sums of drop, flow and pressure; least and greatest flow. */
   block_s: number;
   scans: number;
@@ -86,8 +95,12 @@ export const PRESSURE_DROP: Indicator<PressureDropState> = {
     return input.model.stores.map((store, s) => {
       const drop = state.stores[s] as Drop;
       const channel = channelOf(input.model, 'pressure_drop', store.store.id);
+      const tests = [drop.freezing.test, drop.thawed.test];
+      if (beginAnew([drop.healthy], tests, watching.baseline_from_ms))
+        Object.assign(drop, startDrop(), { healthy: drop.healthy });
       if (channel >= 0) follow(drop, store, s, channel, rule, watching, input);
-      const stamp = `${stampOf(drop.freezing)} ${stampOf(drop.thawed)} ${rule.limit}`;
+      const left = `${drop.uneven} ${drop.absurd}`;
+      const stamp = `${stampOf(drop.freezing)} ${stampOf(drop.thawed)} ${left} ${rule.limit}`;
       return remembered(drop, stamp, () => view(drop, store, channel, rule));
     });
   },
@@ -98,6 +111,8 @@ function startDrop(): Drop {
     freezing: startFollowed(),
     thawed: startFollowed(),
     healthy: startBaseline(),
+    uneven: 0,
+    absurd: 0,
     ...EMPTY_BLOCK,
     blocks: 0,
     coldBlocks: 0,
@@ -161,13 +176,19 @@ function follow(
   const measured = drop.drop_Pa / scans;
   const pressure = drop.pressure / scans;
   Object.assign(drop, EMPTY_BLOCK);
-  if (scans < 3 || most_kg_s - least_kg_s > EVEN * mean) return;
+  if (scans < 3 || most_kg_s - least_kg_s > EVEN * mean) {
+    drop.uneven++;
+    return;
+  }
   const profile = meanTemperatures(store, state.stores[s] as StoreState);
   const { bed } = store.store;
   // Density goes with the pressure, and the drop with its inverse.
   const law = pressureDrop(bed, mean / bed.area_m2, profile) * (bed.pressure_Pa / pressure);
   const ratio = measured / law;
-  if (!(ratio > 0 && ratio < 1e3)) return;
+  if (!(ratio > 1 / MOST_RATIO && ratio < MOST_RATIO)) {
+    drop.absurd++;
+    return;
+  }
   note(drop, ratio, profile);
   drop.ratios += ratio;
   drop.blocks++;
@@ -188,15 +209,15 @@ function note(drop: Drop, ratio: number, profile: Float64Array): void {
   mean.sum = mean.sum * keep + ratio;
 }
 
-/** Healthy ratio with its sigma: learned, but no more than a sound bed can have. */
-function healthyOf(drop: Drop): { value: number; sigma: number; learned: boolean } {
-  const learned = drop.healthy.count >= 2 ? baseline(drop.healthy, RULE) : null;
-  if (learned === null) return { value: 1, sigma: Math.exp(PRIOR_SIGMA) - 1, learned: false };
-  return {
-    value: Math.min(learned.value, Math.exp(2 * PRIOR_SIGMA)),
-    sigma: learned.sigma,
-    learned: true,
-  };
+/**
+ * ln of the healthy ratio: learned, but no more than a sound bed can have. Less than that is believed:
+ * only an excess is looked for, and the lower norm finds it the sooner.
+ */
+function healthyOf({ healthy }: Drop): Healthy {
+  const known = healthyBy(healthy, HEALTHY);
+  const learned = baseline(healthy, RULE);
+  if (learned === null || learned.value >= known.value) return known;
+  return { ...learned, from: 'learned' };
 }
 
 function take(
@@ -208,23 +229,21 @@ function take(
 ): void {
   const followed = 2 * drop.coldBlocks > drop.blocks ? drop.freezing : drop.thawed;
   const known = healthyOf(drop);
-  const value = ratio / known.value;
-  const spread = known.sigma / known.value;
-  const healthy = 1 + 2 * spread;
+  const own = { value: Math.log(ratio), sigma: VALUE_SIGMA };
+  const limit = { degraded: Math.log(rule.limit), back: Math.log(rule.limit - rule.deadband) };
+  // A value goes into one of the two tests only: together they decide no oftener than one.
   followed.decision = decisionAt(in_control_d, BLOCK_S * BLOCKS);
-  const tested = { value, sigma: VALUE_SIGMA * value, healthy, degraded: healthy * rule.limit };
-  stepSequential(followed.test, tested, followed.decision);
+  testSide(followed.test, own, known, limit, followed.decision);
   // Nothing speaks for an excess: what comes from now on may be one (Page's estimate of the change).
   const both = [drop.freezing.test, drop.thawed.test];
   if (both.every(({ up, degraded }) => up === 0 && !degraded))
     Object.assign(drop, { cold: noMean(), warm: noMean() });
-  followed.value = value;
-  followed.sigma = Math.hypot(VALUE_SIGMA, spread) * value;
+  followed.value = ratio / Math.exp(known.value);
+  followed.sigma = Math.hypot(VALUE_SIGMA, known.sigma) * followed.value;
   followed.time_ms = time_ms;
   const found = both.some(({ degraded }) => degraded);
-  drop.only = found ? onlyWhileCold(drop, known.value, rule) : null;
+  drop.only = found ? onlyWhileCold(drop, Math.exp(known.value), rule) : null;
   if (found || followed.test.up > 0.25 * followed.decision) return;
-  const own = { value: ratio, sigma: VALUE_SIGMA * ratio };
   learnBaseline(drop.healthy, own, time_ms, baseline_from_ms, RULE);
 }
 
@@ -244,9 +263,9 @@ function view(
     rule,
     followed,
     healthy: channel < 0 ? null : 1,
-    healthy_from: known.learned ? 'learned' : 'configured',
+    healthy_from: known.from,
     reason: channel < 0 ? 'not_instrumented' : drop.healthy.kept ? null : 'learning',
-    sentence: dropSentence(store.id, followed, drop.healthy, channel, known.learned, only, rule),
+    sentence: dropSentence(store.id, followed, drop, channel, known.from === 'learned', only, rule),
   });
   return { ...shown, only_while_cold: only };
 }

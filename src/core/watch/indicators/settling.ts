@@ -184,15 +184,17 @@ function compare(
 
 /** Hands a value to the test of its thermocouple and, of a topmost one, to that of the whole bed. */
 function take(
-  { whole }: Level,
+  { whole, tops }: Level,
   { first, followed }: Top,
   tested: SequentialValue,
   in_control_d: number,
   time_ms: number,
 ): void {
   const { value, sigma } = tested;
+  // One test for each, and that of the whole, which takes as many values as there are topmost ones.
+  const count = tops.length + tops.filter((top) => top.first).length;
   for (const one of first ? [followed, whole] : [followed]) {
-    one.decision = decisionAt(in_control_d, 6 * MEAN_S);
+    one.decision = decisionAt(in_control_d, 6 * MEAN_S, count);
     stepSequential(one.test, tested, one.decision);
     Object.assign(one, { value, sigma, time_ms });
   }

@@ -85,8 +85,14 @@ function finite(value: number | null): number | null {
   return value !== null && Number.isFinite(value) ? value : null;
 }
 
+/** `toFixed` without a sign on what rounds to nothing: `0.0`, never `-0.0`. */
+export function fixed(value: number, digits: number): string {
+  const text = value.toFixed(digits);
+  return Number(text) === 0 ? (0).toFixed(digits) : text;
+}
+
 /** `1.23 +/- 0.04` with the digits that sigma bears. */
 export function withSigma(value: number, sigma: number, digits: number): string {
   const least = 10 ** -digits;
-  return `${value.toFixed(digits)} +/- ${Math.max(sigma, least).toFixed(digits)}`;
+  return `${fixed(value, digits)} +/- ${Math.max(sigma, least).toFixed(digits)}`;
 }

@@ -8,8 +8,9 @@ import type {
   IndicatorsDefinition,
   IndicatorView,
 } from '../indicator.js';
-import { decisionAt, newInformation, stepSequential } from '../sequential.js';
+import { decisionAt, newInformation } from '../sequential.js';
 import { type Followed, remembered, shownAs, stampOf, startFollowed, withSigma } from './shown.js';
+import { beginAnew, testSide } from './sides.js';
 import { fitRest } from './standingFit.js';
 import { MEAN_S, type Rest, startRest, stepRest } from './standingRest.js';
 import { leakThrough } from './valveLeak.js';
@@ -114,6 +115,9 @@ function follow(
 ): void {
   const { conditions, scan } = taken;
   const store = state.stores[s] as StoreState;
+  const { followed, healthy } = standing;
+  if (beginAnew([healthy], [followed.test], watching.baseline_from_ms))
+    Object.assign(standing, { followed: startFollowed() });
   const stands = conditions.mode === 'stand' && conditions.flow_kg_s === 0 && conditions.flowKnown;
   if (!stands || !store.started || dt_s > GAP_S || taken.stores[s]?.step === 'reacquired') {
     endRest(standing, watching, time_ms);
@@ -189,11 +193,10 @@ function test(
   followed.decision = decisionAt(in_control_d, LEAST_S);
   const news = told === null ? own(now) : newInformation(own(told), own(now), 0);
   if (news === null) return;
-  const healthy = 1 + (2 * known.sigma) / known.one;
-  const value = over(news.value);
-  const sigma = news.sigma / known.one;
-  const degraded = healthy + rule.limit - 1;
-  stepSequential(followed.test, { value, sigma, healthy, degraded }, followed.decision);
+  const healthy = { value: 1, sigma: known.sigma / known.one };
+  const limit = { degraded: rule.limit - 1, back: rule.limit - rule.deadband - 1 };
+  const tested = { value: over(news.value), sigma: news.sigma / known.one };
+  testSide(followed.test, tested, healthy, limit, followed.decision);
 }
 
 function endRest(

@@ -1,8 +1,9 @@
 import type { Mode } from '../../definitions.js';
-import { type BaselineState, baseline, learnBaseline, startBaseline } from '../baseline.js';
+import { type BaselineState, learnBaseline, startBaseline } from '../baseline.js';
 import type { Indicator, IndicatorReason, IndicatorRule, IndicatorView } from '../indicator.js';
-import { decisionAt, stepSequential } from '../sequential.js';
+import { decisionAt } from '../sequential.js';
 import { type Followed, remembered, shownAs, stampOf, startFollowed, withSigma } from './shown.js';
+import { beginAnew, healthyBy, testSide } from './sides.js';
 
 /** A run shorter than this ends no phase of a cycle [s]. */
 const LEAST_RUN_S = 1800;
@@ -14,8 +15,11 @@ const VALUE_SIGMA = 0.02;
 const RULE = { floor: 0.015, enough: 0.02, least: 2 };
 /** Stores that are charged together may stand apart by this as long as nothing usual is known [-]. */
 const PRIOR_SIGMA = 0.1;
+const HEALTHY = { configured: { value: 0, sigma: PRIOR_SIGMA }, baseline: RULE };
 /** Values come at the ends of runs, some three hours apart [s]. */
 const SPACING_S = 3 * 3600;
+
+type Run = 'charge' | 'discharge';
 
 export interface StoreMismatchState {
   mode: Mode;
@@ -23,8 +27,10 @@ export interface StoreMismatchState {
   /** Newest charge of the first hot and the cold store, and sigma of their difference. */
   difference: number;
   sigma: number;
-  /** Which of them holds more, as a sign. */
-  readonly healthy: Record<'charge' | 'discharge', BaselineState>;
+  /** Usual difference at the end of either run. */
+  readonly healthy: Record<Run, BaselineState>;
+  /** At whose end the newest value was taken. */
+  run: Run | null;
   readonly hot: Followed;
   readonly cold: Followed;
 }
@@ -42,6 +48,7 @@ export const STORE_MISMATCH: Indicator<StoreMismatchState> = {
     difference: Number.NaN,
     sigma: Number.NaN,
     healthy: { charge: startBaseline(), discharge: startBaseline() },
+    run: null,
     hot: startFollowed(),
     cold: startFollowed(),
   }),
@@ -52,6 +59,10 @@ export const STORE_MISMATCH: Indicator<StoreMismatchState> = {
     const alone = hot < 0 || cold < 0;
     const scale = model.fullHours / unit.rated_hours;
     const { mode } = taken.conditions;
+    const { charge, discharge } = state.healthy;
+    const tests = [state.hot.test, state.cold.test];
+    if (beginAnew([charge, discharge], tests, watching.baseline_from_ms))
+      Object.assign(state, { hot: startFollowed(), cold: startFollowed(), run: null });
     if (mode !== state.mode) {
       if (state.mode !== 'stand' && state.ran_s >= LEAST_RUN_S && Number.isFinite(state.sigma))
         take(state, state.mode, scale);
@@ -67,25 +78,25 @@ export const STORE_MISMATCH: Indicator<StoreMismatchState> = {
     const stamp = `${stampOf(state.hot)} ${rule.limit}`;
     return [remembered(state, stamp, () => view(state, unit.id, alone, rule))];
 
-    function take(now: StoreMismatchState, run: 'charge' | 'discharge', factor: number): void {
-      const learned = baseline(now.healthy[run], RULE);
-      const known = learned ?? { value: 0, sigma: PRIOR_SIGMA };
+    function take(now: StoreMismatchState, run: Run, factor: number): void {
+      const known = healthyBy(now.healthy[run], HEALTHY);
       const value = factor * (now.difference - known.value);
       const sigma = factor * Math.hypot(now.sigma, VALUE_SIGMA);
-      const healthy = factor * 2 * known.sigma;
+      const healthy = { value: 0, sigma: factor * known.sigma };
+      const limit = { degraded: rule.limit, back: rule.limit - rule.deadband };
       for (const [one, sign] of [
         [now.hot, 1],
         [now.cold, -1],
       ] as const) {
-        one.decision = decisionAt(watching.in_control_d, SPACING_S);
-        const tested = { value: sign * value, sigma, healthy, degraded: healthy + rule.limit };
-        stepSequential(one.test, tested, one.decision);
+        one.decision = decisionAt(watching.in_control_d, SPACING_S, tests.length);
+        testSide(one.test, { value: sign * value, sigma }, healthy, limit, one.decision);
         Object.assign(one, {
           value: Math.abs(value),
           sigma: Math.hypot(sigma, factor * known.sigma),
           time_ms,
         });
       }
+      now.run = run;
       const leans = [now.hot, now.cold].some(
         ({ test, decision }) => test.degraded || test.up > 0.25 * decision,
       );
@@ -103,7 +114,7 @@ function view(
   rule: IndicatorRule,
 ): IndicatorView {
   const followed = worse(state);
-  const kept = state.healthy.charge.kept || state.healthy.discharge.kept;
+  const kept = state.run !== null && state.healthy[state.run].kept;
   let reason: IndicatorReason | null = null;
   if (alone) reason = 'not_instrumented';
   else if (followed.test.count > 0 && !kept) reason = 'learning';

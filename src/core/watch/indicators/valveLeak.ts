@@ -1,8 +1,9 @@
 import type { StoreModel, StoreState } from '../../track/storeTracker.js';
 import { leakSigma } from '../../track/tube.js';
 import type { Indicator, IndicatorRule, IndicatorView } from '../indicator.js';
-import { decisionAt, newInformation, stepSequential } from '../sequential.js';
+import { decisionAt, newInformation } from '../sequential.js';
 import { type Followed, remembered, shownAs, stampOf, startFollowed, withSigma } from './shown.js';
+import { testSide } from './sides.js';
 
 /** Values are taken this often while the unit stands [s]: by then the fronts have moved by more than noise. */
 const EVERY_S = 2 * 3600;
@@ -14,6 +15,8 @@ const SETTLE_S = 1800;
  * rests of the finer plant: 10 to 15 g/s of 36 kg/s.
  */
 const MODEL_SHARE = 0.0004;
+/** Tests of each store: gas may pass either way. */
+const WAYS = 2;
 /** Walk of the tubes' leak within a day, as a share of its prior; see processNoise. */
 const WALK_PER_SQRT_DAY = 0.3;
 
@@ -129,21 +132,28 @@ function take(
     followed.value = Math.abs(value);
     followed.sigma = Math.hypot(sigma, MODEL_SHARE);
     followed.time_ms = time_ms;
-    followed.decision = decisionAt(in_control_d, EVERY_S);
+    followed.decision = decisionAt(in_control_d, EVERY_S, WAYS);
   }
   if (news === null) return;
   valve.known = now.value;
   valve.knownSigma = now.sigma;
-  const healthy = 2 * MODEL_SHARE;
-  const degraded = Math.max(rule.limit, 2 * healthy);
+  const limit = limitOf(rule);
+  // Back, too, must be told from what the model may take for a leak.
+  const back = Math.max(limit - rule.deadband, 3 * MODEL_SHARE);
   for (const [followed, sign] of [
     [valve.charging, 1],
     [valve.discharging, -1],
   ] as const) {
-    const tested = { value: sign * news.value, sigma: news.sigma, healthy, degraded };
-    stepSequential(followed.test, tested, followed.decision);
+    const healthy = { value: 0, sigma: MODEL_SHARE };
+    // From nothing, so that two sigmas of the model are part of the limit.
+    const sides = { degraded: limit - 2 * MODEL_SHARE, back: back - 2 * MODEL_SHARE };
+    const own = { value: sign * news.value, sigma: news.sigma };
+    testSide(followed.test, own, healthy, sides, followed.decision);
   }
 }
+
+/** What the model may take for a leak sets the least that is one. */
+const limitOf = ({ limit }: IndicatorRule): number => Math.max(limit, 4 * MODEL_SHARE);
 
 function view(
   valve: Valve,
@@ -176,6 +186,7 @@ function view(
     healthy: 0,
     healthy_from: 'law',
     reason,
+    limit: limitOf(rule),
     sentence: sentence(store.id, followed, followed === charging, followsNone, most, rule),
   });
 }

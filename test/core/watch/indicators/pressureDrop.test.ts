@@ -1,6 +1,7 @@
 import { describe, expect, it } from 'vitest';
 import { pressureDrop } from '../../../../src/core/bed/pressureDrop.js';
 import { PRESSURE_DROP } from '../../../../src/core/watch/indicators/pressureDrop.js';
+import { INDICATORS_DEFAULT } from '../../../../src/core/watch/rules.js';
 import { normals } from '../normals.js';
 import { demo, Rig } from './rig.js';
 
@@ -62,6 +63,30 @@ describe('pressure drop', () => {
     const channels = demo.channels.filter(({ role }) => role.kind !== 'pressure_drop');
     const [hot] = new Rig(PRESSURE_DROP, { ...demo, channels }).step({ mode: 'stand' });
     expect(hot).toMatchObject({ state: 'undetermined', reason: 'not_instrumented', healthy: null });
+  });
+
+  it('is healthy again only below its limit less the deadband', () => {
+    const { run } = rigAt(7);
+    run(10, 200, 1);
+    expect(run(3, 200, 1.3)).toMatchObject({ state: 'degraded' });
+    // 1.09 is nearer to healthy than to the limit of 1.15, but not than to 1.10.
+    expect(run(12, 200, 1.09)).toMatchObject({ state: 'degraded' });
+    expect(run(6, 200, 1)).toMatchObject({ state: 'normal' });
+  });
+
+  it('begins anew after an overhaul, although it stood degraded', () => {
+    const { rig, run } = rigAt(8);
+    run(10, 200, 1);
+    expect(run(4, 200, 1.4)).toMatchObject({ state: 'degraded' });
+    rig.watching = { ...INDICATORS_DEFAULT, baseline_from_ms: rig.time_ms };
+    expect(run(9, 200, 1.4)).toMatchObject({ state: 'normal', healthy_from: 'learned' });
+    expect(run(4, 200, 1.7)).toMatchObject({ state: 'degraded' });
+  });
+
+  it('counts what it leaves out', () => {
+    const { run } = rigAt(9);
+    expect(run(1, 200, 1e12).sentence).toMatch(/Left out .* 6 with a drop that no bed has/);
+    expect(run(2, 200, 1)).toMatchObject({ score: 0 });
   });
 
   it('never decides in 200 healthy hours', () => {

@@ -30,6 +30,7 @@ export class Rig<S> {
   readonly state: UnitState;
   readonly own: S;
   time_ms = Date.UTC(2026, 0, 1);
+  watching = INDICATORS_DEFAULT;
   private readonly index;
 
   constructor(
@@ -82,8 +83,8 @@ export class Rig<S> {
       ...{ unit: this.unit, model: this.model, state: this.state, spread: {}, estimate: null },
       ...{ taken: taken as unknown as Taken, time_ms: this.time_ms, dt_s: this.scan_s },
     } as unknown as IndicatorInput;
-    const rule = INDICATORS_DEFAULT.rules[this.indicator.kind];
-    return this.indicator.step(this.own, rule, INDICATORS_DEFAULT, input);
+    const rule = this.watching.rules[this.indicator.kind];
+    return this.indicator.step(this.own, rule, this.watching, input);
   }
 
   /** Scans for so many hours; `moment` of the time since their start [h]. */

@@ -1,5 +1,6 @@
 import { describe, expect, it } from 'vitest';
 import { STORE_MISMATCH } from '../../../../src/core/watch/indicators/storeMismatch.js';
+import { INDICATORS_DEFAULT } from '../../../../src/core/watch/rules.js';
 import { normals } from '../normals.js';
 import { demo, Rig } from './rig.js';
 
@@ -30,6 +31,18 @@ describe('store mismatch', () => {
     expect(view.sentence).toMatch(/the hot store holds .* more/);
     const scale = new Rig(STORE_MISMATCH).model.fullHours / demo.rated_hours;
     expect(view.value!).toBeCloseTo(0.2 * scale, 1);
+  });
+
+  it('comes back below the limit less the deadband, and begins anew after an overhaul', () => {
+    const { rig, cycle } = cycles();
+    for (let n = 0; n < 8; n++) cycle(0);
+    let view = cycle(0);
+    for (let n = 0; n < 5; n++) view = cycle(0.2);
+    expect(view).toMatchObject({ state: 'degraded' });
+    rig.watching = { ...INDICATORS_DEFAULT, baseline_from_ms: rig.time_ms };
+    for (let n = 0; n < 8; n++) view = cycle(0.1);
+    expect(view).toMatchObject({ state: 'normal', healthy_from: 'learned' });
+    expect(Math.abs(view.value!)).toBeLessThan(0.05);
   });
 
   it('shows at the end of a run, and not by a store alone', () => {
