@@ -1,5 +1,6 @@
 import { CAUSE_KINDS, CAUSES, type CauseKind } from './causeTable.js';
 import type { IndicatorKind, IndicatorView } from './indicator.js';
+import { sideOf } from './side.js';
 
 export { CAUSE_KINDS, type CauseKind } from './causeTable.js';
 
@@ -131,7 +132,10 @@ function coldness(cause: CauseKind, here: Strongest): number {
   return Math.log(only === true ? 0.1 : 1);
 }
 
-/** What is degraded and expected speaks for it; what is degraded and not expected, or expected and normal, against. */
+/**
+ * What is degraded and expected speaks for it; what is degraded and not expected against, and what is
+ * expected and on the healthy side. A value between, or beyond its limit and not decided, is neither.
+ */
 function evidenceOf(cause: CauseKind, here: Strongest, there: Strongest): string[] {
   const { shows, other } = CAUSES[cause];
   const lines: string[] = [];
@@ -139,7 +143,9 @@ function evidenceOf(cause: CauseKind, here: Strongest, there: Strongest): string
     if (view.state === 'degraded' && chance >= 0.3) lines.push(`For it: ${view.sentence}`);
     else if (view.state === 'degraded') lines.push(`Not explained by it: ${view.sentence}`);
     else if (chance < 0.5) return;
-    else if (view.state === 'normal') lines.push(`Against it, so far: ${view.sentence}`);
+    else if (view.state === 'normal' && sideOf(view) === 'healthy')
+      lines.push(`Against it, so far: ${view.sentence}`);
+    else if (view.state === 'normal') lines.push(`Not decided yet: ${view.sentence}`);
     else lines.push(`Not known: ${view.sentence}`);
   };
   for (const [kind, view] of here) say(view, shows[kind] ?? STRAY);

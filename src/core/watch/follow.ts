@@ -63,6 +63,8 @@ export interface Followed {
 
 /** What a plant may be off from its configuration counts as healthy up to this many sigmas. */
 const CREDIBLE = 2;
+/** From half a decision on a value is rather one of a plant that degrades: it is not learned from. */
+const LEANS = 0.5;
 /** The healthy value is taken this many of its sigmas nearer to the limit: to err on the safe side. */
 const SAFE = 2;
 
@@ -93,7 +95,8 @@ export function healthyOf(state: FollowState, rule: FollowRule): Healthy {
 
 /**
  * Takes one independent value in. It is tested against what was healthy before it; nothing is learned
- * from while the plant counts as degraded.
+ * from while the plant counts as degraded, nor while a test is halfway there: a fault that came between
+ * the first values would pass for what is healthy.
  *
  * @param state changed in place
  * @throws RangeError for a sigma that is not positive, a value that is not finite, or limits whose
@@ -122,7 +125,7 @@ export function follow(
   state.value = news.value;
   state.sigma = news.sigma;
   state.time_ms = time_ms;
-  if (state.tests.every((test) => !test.degraded))
+  if (state.tests.every((test) => sequentialScore(test, rule.decision) < LEANS))
     learnBaseline(state.baseline, news, time_ms, rule.from_ms, rule.baseline);
 }
 

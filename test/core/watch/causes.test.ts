@@ -127,6 +127,21 @@ describe('causes', () => {
     );
   });
 
+  it('counts a normal indicator against a cause only where its value is on the healthy side', () => {
+    const lineOf = (part: Partial<IndicatorView>) => {
+      const views = unitOf(new Set(['heat_transfer hot'])).map((v) =>
+        v.kind === 'spread_ratio' && v.subject === 'hot' ? view('spread_ratio', 'hot', part) : v,
+      );
+      const [first] = causesOf(views);
+      expect(first?.cause).toBe('dust_or_fines');
+      return first!.evidence.find((line) => line.includes('spread_ratio'));
+    };
+    expect(lineOf({ value: 1.1, score: 0.1 })).toMatch(/^Against it, so far: /);
+    // Beyond the limit of 2, or a test that is half way there.
+    expect(lineOf({ value: 2.1, score: 0.1 })).toMatch(/^Not decided yet: /);
+    expect(lineOf({ value: 1.1, score: 0.5 })).toMatch(/^Not decided yet: /);
+  });
+
   it('gives chances that never add up to more than one per store, in falling order, whatever is seen', () => {
     const marks = unitOf(new Set()).map((v) => `${v.kind} ${v.subject}`);
     fc.assert(

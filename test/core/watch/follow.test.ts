@@ -70,7 +70,21 @@ describe('a figure that is followed', () => {
   it('is found where it was degraded beyond what the configuration allows from the start', () => {
     const { found, end } = run(() => Math.log(0.16), 24);
     expect(found).toBeLessThan(12);
+    expect(end.healthy).toEqual({ value: 0, sigma: 0.5, from: 'configured' });
+  });
+
+  it('does not believe more of healthy than the configuration allows', () => {
+    const { found, end } = run(() => -1.08, 400, { sigma: 0.05 });
+    expect(found).toBeNull();
     expect(end.healthy).toEqual({ value: -1, sigma: 0, from: 'configured' });
+  });
+
+  it('does not learn a fault that comes between the first values', () => {
+    const healthy = run(() => 0.2, 2, { sigma: 0.02 }).state;
+    const { found, end, state } = run((h) => (h > 2 ? -2 : 0.2), 12, { sigma: 0.02 });
+    expect(found).toBe(4);
+    expect(state.baseline).toEqual(healthy.baseline);
+    expect(end.healthy.value).toBeCloseTo(0.2, 1);
   });
 
   it('does not follow a slow decay', () => {

@@ -13,6 +13,7 @@ import {
   startSequential,
   stepSequential,
 } from '../sequential.js';
+import { normalWords } from '../side.js';
 import { dayOf, isDue, viewed } from './view.js';
 import { pitchOf, type WayState, wayOf } from './way.js';
 
@@ -127,11 +128,18 @@ function view(
   const decision = decisionAt(watching.in_control_d, VALUE_EVERY_S, SIDES);
   const far = (sigmas: number) =>
     `the fitted front stands ${Math.abs(sigmas).toFixed(1)} sigmas ${sigmas > 0 ? 'further from' : 'nearer to'} the charge inlet than the bed model says (limit ${rule.limit.toFixed(1)})`;
+  const score = value === null ? null : Math.max(...tests.map((t) => sequentialScore(t, decision)));
+  const tested = mean ?? value;
+  const limit = (tested ?? 0) < 0 ? -rule.limit : rule.limit;
+  const words = normalWords(
+    { value: tested, healthy: 0, limit, score },
+    'over whole runs they agree',
+  );
   const sentence = !canSee
     ? `${name}: with fewer than two thermocouples no front can be fitted to it.`
     : {
         degraded: `${name}: over whole runs ${far(mean ?? 0)}. Hours go by the bed model. Look at the profile of this string, at its sensors, and at the flow meter.`,
-        normal: `${name}: ${far(value ?? 0)}; over whole runs they agree.`,
+        normal: `${name}: ${far(value ?? 0)}; ${words}.`,
         undetermined: `${name}: it has not seen a front yet to hold against the bed model.`,
       }[state];
   return {
@@ -146,7 +154,7 @@ function view(
     deadband: rule.deadband,
     on_delay_s: rule.on_delay_s,
     off_delay_s: rule.off_delay_s,
-    score: value === null ? null : Math.max(...tests.map((t) => sequentialScore(t, decision))),
+    score,
     state,
     reason: state !== 'undetermined' ? null : canSee ? 'not_exercised' : 'not_instrumented',
     time: dayOf(time_ms),

@@ -10,7 +10,8 @@ import type {
   IndicatorView,
 } from '../indicator.js';
 import { decisionAt } from '../sequential.js';
-import { dayOf, healthyWords, viewed, viewOf } from './view.js';
+import { learningWords, normalWords } from '../side.js';
+import { dayOf, healthyWords, rounded, viewed, viewOf } from './view.js';
 
 interface Lost {
   /** Share of the rated energy [-]. */
@@ -135,23 +136,33 @@ function view(
   const { last } = state;
   const energy = (share: number) => (share * unit.rated_hours * unit.rated_power_W) / 1e6;
   const healthy = result.healthy.value;
-  const off = (last?.share ?? 0) - healthy;
-  const is = `Unit ${unit.id}: degraded beds cost ${energy(off).toFixed(2)} +/- ${energy(Math.hypot(last?.sigma ?? 0, result.healthy.sigma)).toFixed(2)} MWh_el at rated power from the present heat, ${(100 * off).toFixed(1)} % of the rated energy`;
-  const bracket = `(${healthyWords(state.follow, result.healthy)}; limit ${(100 * rule.limit).toFixed(0)} %)`;
+  // The bound is the worst that counts as healthy, for the test: what is lost counts from healthy itself.
+  const bound = result.healthy.sigma === 0 && healthy > rules.configured.value;
+  const from = bound ? rules.configured : result.healthy;
+  const off = (last?.share ?? 0) - from.value;
+  const sigma = Math.hypot(last?.sigma ?? 0, from.sigma);
+  const limit = rule.limit + healthy - from.value;
+  const is = `Unit ${unit.id}: degraded beds cost ${energy(off).toFixed(2)} +/- ${energy(sigma).toFixed(2)} MWh_el at rated power from the present heat, ${rounded(100 * off)} % of the rated energy`;
+  const against = bound
+    ? 'against a unit as configured, as more was lost while healthy was being learned than it may be off'
+    : healthyWords(state.follow, result.healthy);
+  const bracket = `(${against}; limit ${(100 * limit).toFixed(0)} %)`;
+  const value = last?.share ?? null;
+  const placed = { value, healthy, limit: healthy + rule.limit, score: result.score };
   const sentence = {
     degraded: `${is} ${bracket}. Offers and hours already allow for it; see the other indicators for where it comes from.`,
-    normal: `${is} ${bracket}.`,
+    normal: `${is} ${bracket}: ${normalWords(placed, 'as little as when it was healthy')}.`,
     undetermined:
       result.reason === 'learning'
-        ? `${is} ${bracket}. What is healthy for it is still being learned, charge by charge.`
+        ? `${is} ${bracket}. What is healthy for it is still being learned, charge by charge.${learningWords(placed)}`
         : `Unit ${unit.id}: what degraded beds cost is not known before the first charge is over.`,
   }[result.state];
   return viewOf('energy_lost', unit.id, rule, result, {
-    value: last?.share ?? null,
+    value,
     sigma: last?.sigma ?? null,
     unit: '-',
     healthy,
-    limit: healthy + rule.limit,
+    limit: placed.limit,
     deadband: rule.deadband,
     time: dayOf(last?.time_ms ?? null),
     sentence,

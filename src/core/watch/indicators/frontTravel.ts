@@ -18,6 +18,7 @@ import type {
   IndicatorView,
 } from '../indicator.js';
 import { decisionAt } from '../sequential.js';
+import { learningWords, normalWords } from '../side.js';
 import { bothSides, dayOf, healthyWords, percent, viewed, viewOf } from './view.js';
 
 interface RunSoFar {
@@ -139,20 +140,23 @@ function view(one: StoreView, all: readonly StoreView[], rule: IndicatorRule): I
   const side = result.degraded ?? offOf(one);
   const is = `Store ${id}: per metered kilogram its front went ${percent(state.value ?? 0)} +/- ${(100 * (state.sigma ?? 0)).toFixed(1)} % against the model in the last run, ${percent(offOf(one))} against the healthy ${percent(result.healthy.value)}`;
   const bracket = `(${healthyWords(state, result.healthy)}; limit +/-${(100 * rule.limit).toFixed(0)} %)`;
+  const value = Math.exp(state.value ?? 0);
+  const limit = healthy * (side >= 0 ? 1 + rule.limit : 1 - rule.limit);
+  const placed = { value, healthy, limit, score: result.score };
   const sentence = {
     degraded: `${is} ${bracket}. ${alike(one, all)}`,
-    normal: `${is} ${bracket}: meter and heat capacity are as they were.`,
+    normal: `${is} ${bracket}: ${normalWords(placed, 'meter and heat capacity are as they were')}.`,
     undetermined:
       result.reason === 'learning'
-        ? `${is} ${bracket}. What is healthy for it is still being learned, run by run.`
+        ? `${is} ${bracket}. What is healthy for it is still being learned, run by run.${learningWords(placed)}`
         : `Store ${id}: travel of its front per metered kilogram is not known yet; it takes a run that changes the state of charge by 15 % and ends.`,
   }[result.state];
   return viewOf('front_travel', id, rule, result, {
-    value: known ? Math.exp(state.value ?? 0) : null,
-    sigma: known ? Math.exp(state.value ?? 0) * (state.sigma ?? 0) : null,
+    value: known ? value : null,
+    sigma: known ? value * (state.sigma ?? 0) : null,
     unit: '-',
     healthy,
-    limit: healthy * (side >= 0 ? 1 + rule.limit : 1 - rule.limit),
+    limit,
     deadband: rule.deadband * healthy,
     time: dayOf(state.time_ms),
     sentence,

@@ -14,6 +14,7 @@ import type {
   IndicatorView,
 } from '../indicator.js';
 import { decisionAt } from '../sequential.js';
+import { learningWords, normalWords } from '../side.js';
 import {
   type Known,
   NEWS_EVERY_S,
@@ -183,12 +184,15 @@ function view(
   const sigma = ((value / healthy) * open).toFixed(2);
   const is = `Store ${store.id}: gas and rock exchange ${ratio} +/- ${sigma} times the heat of a healthy bed`;
   const against = `(${healthyWords(state, result.healthy)}; limit ${rule.limit.toFixed(2)})`;
+  const placed = { value, healthy, limit: rule.limit * healthy, score: result.score };
+  // Two sigmas of what is open are less than what the limit is away: a fall far beyond it stands out.
+  const seen = 2 * open < -Math.log(rule.limit) ? '; a gross fall would be seen by now' : '';
   const sentence = {
     degraded: `${is} ${against}. Its fronts widen and the outlet reaches its limit early: fewer hours than the stored heat suggests.`,
-    normal: `${is} ${against}: nothing clogs it.`,
+    normal: `${is} ${against}: ${normalWords(placed, 'nothing clogs it')}.`,
     undetermined:
       result.reason === 'learning'
-        ? `${is} ${against}. What is healthy for it is still being learned, while fronts move; a gross fall would be seen by now.`
+        ? `${is} ${against}. What is healthy for it is still being learned, while fronts move${seen}.${learningWords(placed)}`
         : `Store ${store.id}: heat transfer between gas and rock is not known yet; a front has to move through the bed for an hour.`,
   }[result.state];
   return viewOf('heat_transfer', store.id, rule, result, {
@@ -196,7 +200,7 @@ function view(
     sigma: state.value === null ? null : value * now.sigma,
     unit: '-',
     healthy,
-    limit: rule.limit * healthy,
+    limit: placed.limit,
     deadband: rule.deadband * healthy,
     time: dayOf(state.time_ms),
     sentence,

@@ -15,6 +15,7 @@ import type {
   IndicatorView,
 } from '../indicator.js';
 import { decisionAt } from '../sequential.js';
+import { learningWords, normalWords } from '../side.js';
 import { dayOf, healthyWords, viewed, viewOf } from './view.js';
 import { pitchOf, type WayState, wayOf } from './way.js';
 
@@ -120,12 +121,13 @@ function view(
   const from = state.baseline.count > 0 ? healthyWords(state, result.healthy) : 'by the twin';
   const is = `Store ${store}: its front is ${value.toFixed(2)} +/- ${sigma.toFixed(2)} times as wide as the healthy twin's, healthy is ${healthy.toFixed(2)}`;
   const bracket = `(${from}; limit ${(rule.limit * healthy).toFixed(2)})`;
+  const placed = { value, healthy, limit: rule.limit * healthy, score: result.score };
   const sentence = {
     degraded: `${is} ${bracket}. A wide front gives fewer hours than the stored heat suggests. Look at the heat-transfer factor (low: dust or fines) and at the flow factors of the strings (unlike: gas finds a channel).`,
-    normal: `${is} ${bracket}: as steep as after the same history in a healthy bed.`,
+    normal: `${is} ${bracket}: ${normalWords(placed, 'as steep as after the same history in a healthy bed')}.`,
     undetermined:
       result.reason === 'learning'
-        ? `${is} ${bracket}. What is healthy for this store is still being learned, while fronts move.`
+        ? `${is} ${bracket}. What is healthy for this store is still being learned, while fronts move.${learningWords(placed)}`
         : `Store ${store}: no front has moved far enough yet to compare its width with the healthy twin's.`,
   }[result.state];
   return viewOf('spread_ratio', store, rule, result, {
@@ -134,7 +136,7 @@ function view(
     unit: '-',
     healthy,
     healthy_from: result.healthy.from === 'learned' ? 'learned' : 'twin',
-    limit: rule.limit * healthy,
+    limit: placed.limit,
     deadband: rule.deadband * healthy,
     time: dayOf(state.time_ms),
     sentence,

@@ -15,6 +15,7 @@ import type {
   IndicatorView,
 } from '../indicator.js';
 import { decisionAt } from '../sequential.js';
+import { learningWords, normalWords } from '../side.js';
 import {
   type Known,
   NEWS_EVERY_S,
@@ -187,12 +188,14 @@ function view(
     gained === one
       ? 'The gas has found an easier way there: its front runs ahead and reaches the outlet first.'
       : `What it lacks has gone to string ${gained.name} (${percent(off(gained))}): look there for a channel.`;
+  const limit = healthy * (side >= 0 ? 1 + rule.limit : 1 - rule.limit);
+  const placed = { value, healthy, limit, score: result.score };
   const sentence = {
     degraded: `${is} ${bracket}. ${cause}`,
-    normal: `${is} ${bracket}: as even as ever.`,
+    normal: `${is} ${bracket}: ${normalWords(placed, 'as even as ever')}.`,
     undetermined:
       result.reason === 'learning'
-        ? `${is} ${bracket}. What is healthy for it is still being learned, while fronts move.`
+        ? `${is} ${bracket}. What is healthy for it is still being learned, while fronts move.${learningWords(placed)}`
         : `Store ${store}, string ${one.name}: its share of the flow is not known yet; a front has to move through the bed for an hour.`,
   }[result.state];
   const known = state.value !== null;
@@ -201,7 +204,7 @@ function view(
     sigma: known ? value * now.sigma : null,
     unit: '-',
     healthy,
-    limit: healthy * (side >= 0 ? 1 + rule.limit : 1 - rule.limit),
+    limit,
     deadband: rule.deadband * healthy,
     time: dayOf(state.time_ms),
     sentence,

@@ -78,7 +78,7 @@ export function healthyWords(state: FollowState, healthy: Healthy): string {
     return kept ? `as learned ${span}` : `as learned so far, ${span}`;
   }
   if (from_ms !== null)
-    return 'as far as its configuration allows, which it was beyond from the start';
+    return 'as far as its configuration allows; what was seen while it was learned lay beyond';
   return 'as configured';
 }
 
@@ -93,8 +93,14 @@ export function bothSides({
   }));
 }
 
+/** One decimal, zero without a sign. */
+export function rounded(value: number): string {
+  const text = value.toFixed(1);
+  return Number(text) === 0 ? '0.0' : text;
+}
+
 /** A deviation in ln as a person reads it. */
 export function percent(log: number): string {
-  const value = 100 * Math.expm1(log);
-  return `${value >= 0 ? '+' : ''}${value.toFixed(1)} %`;
+  const value = rounded(100 * Math.expm1(log));
+  return `${Number(value) > 0 ? '+' : ''}${value} %`;
 }

@@ -115,6 +115,10 @@ describe('dispatchable energy lost to degradation', () => {
     expect(last.sentence).toMatch(
       /^Unit u: degraded beds cost 0\.\d\d \+\/- 0\.\d\d MWh_el at rated power/,
     );
+    // Lost since the first charge: told against beds as configured, not against the worst of them.
+    expect(last.sentence).toContain(
+      `${(100 * last.value!).toFixed(1)} % of the rated energy (as conf`,
+    );
     expect(views.flatMap(unsound)).toEqual([]);
   });
 

@@ -85,6 +85,22 @@ describe('heat transfer', () => {
     expect(Object.keys(watchScript(HEAT_TRANSFER, 72, course(5)).found)).toEqual(['hot']);
   });
 
+  it('says that a gross fall would be seen only where sigma is small against the limit', () => {
+    let told = 0;
+    watchScript(HEAT_TRANSFER, 24, () => ({}), {
+      each: (_, [hot]) => {
+        const found = /exchange \d\.\d\d \+\/- (\d\.\d\d).*still being learned/.exec(hot!.sentence);
+        if (found === null) return;
+        told++;
+        const seen = hot!.sentence.includes('gross fall would be seen by now');
+        const twice = 2 * Number(found[1]);
+        if (twice > 0.45) expect(seen).toBe(false);
+        else if (twice < 0.25) expect(seen).toBe(true);
+      },
+    });
+    expect(told).toBeGreaterThan(2);
+  });
+
   it('says that it is learning, and from when what is healthy stems', () => {
     const seen: string[] = [];
     const { of } = watchScript(HEAT_TRANSFER, 60, () => ({}), {

@@ -57,6 +57,28 @@ describe('width against the healthy twin', () => {
     expect(Object.keys(found)).toEqual(['hot']);
   });
 
+  it('never calls steep what is at its limit or beyond, decided or not', () => {
+    const told = new Set<string>();
+    watchScript(
+      SPREAD,
+      72,
+      script((h) => (h < 48 ? 1.1 : 1.8), 1, 0.01),
+      {
+        each: (_, [hot]) => {
+          if (hot!.state !== 'normal') return;
+          const beyond = hot!.value! >= hot!.limit;
+          told.add(beyond ? 'beyond' : 'within');
+          if (beyond)
+            expect(hot!.sentence).toMatch(/: at its limit or beyond, not decided yet \(\d/);
+          expect(hot!.sentence.includes('as steep as')).toBe(
+            hot!.value! < (hot!.healthy! + hot!.limit) / 2 && hot!.score! < 0.25,
+          );
+        },
+      },
+    );
+    expect([...told].sort()).toEqual(['beyond', 'within']);
+  });
+
   it('returns where it is as steep as before', () => {
     const { of } = watchScript(
       SPREAD,
