@@ -2,8 +2,7 @@ import type { Mode } from '../../definitions.js';
 import { meanTemperatures } from '../../track/storeEstimate.js';
 import type { StoreState } from '../../track/storeTracker.js';
 import type { UnitModel } from '../../unitModel.js';
-import { type BaselineState, learnBaseline, startBaseline } from '../baseline.js';
-import type { Healthy } from '../follow.js';
+import { learnBaseline } from '../baseline.js';
 import type {
   Indicator,
   IndicatorInput,
@@ -13,9 +12,19 @@ import type {
   IndicatorView,
 } from '../indicator.js';
 import { decisionAt } from '../sequential.js';
+import {
+  baselinesOf,
+  byMode,
+  type GasLaws,
+  healthyOf,
+  LAWS,
+  type Law,
+  lawOf,
+  RULE,
+} from './gasLaws.js';
 import { channelOf } from './pressureDrop.js';
 import { type Followed, remembered, shownAs, stampOf, startFollowed, withSigma } from './shown.js';
-import { beginAnew, healthyBy, testSide } from './sides.js';
+import { beginAnew, testSide } from './sides.js';
 
 /** An hour in one mode makes one value, after the pressures have settled [s]. */
 const HOUR_S = 3600;
@@ -27,7 +36,6 @@ const LEAST_SCANS = 3;
  * the scatter that the plant itself shows is taken where it is more.
  */
 const VALUE_SIGMA = 0.003;
-const RULE = { floor: 0.002, enough: 0.003, least: 3 };
 /**
  * ln of the pressures of a sound plant against those configured, one sigma, as long as nothing is
  * learned: those are the working ones. While it stands a loop may be let down, and in a closed one they
@@ -36,20 +44,6 @@ const RULE = { floor: 0.002, enough: 0.003, least: 3 };
 const PRIOR_SIGMA = 0.05;
 const WIDE_SIGMA = 0.2;
 
-const MODES = ['charge', 'stand', 'discharge'] as const;
-/** `held`: pressures are kept, gas goes to and from a buffer. `closed`: the loop keeps its gas. */
-const LAWS = ['held', 'closed'] as const;
-type Law = (typeof LAWS)[number];
-
-/** Healthy value of one law in one mode, and the scatter about it. */
-interface Learned {
-  readonly healthy: BaselineState;
-  /** Sums of values less the first, and of their squares. */
-  first: number;
-  sum: number;
-  squares: number;
-}
-
 export interface GasInventoryState {
   mode: Mode | null;
   mode_s: number;
@@ -57,7 +51,7 @@ export interface GasInventoryState {
   scans: number;
   /** Sum of the mean ln pressure [-]. */
   sum: number;
-  readonly laws: Record<Law, Record<Mode, Learned>>;
+  readonly laws: GasLaws;
   followed: Followed;
   /** Mode, and ln of pressures against those configured, of the newest value. */
   newest: { readonly mode: Mode; readonly lnPressure: number } | null;
@@ -87,7 +81,7 @@ export const GAS_INVENTORY: Indicator<GasInventoryState> = {
   step(state, rule, watching, input) {
     const channels = pressuresOf(input.model);
     const from_ms = watching.baseline_from_ms;
-    if (beginAnew(baselinesOf(state), [state.followed.test], from_ms))
+    if (beginAnew(baselinesOf(state.laws), [state.followed.test], from_ms))
       Object.assign(state, {
         laws: { held: byMode(from_ms), closed: byMode(from_ms) },
         followed: startFollowed(),
@@ -108,7 +102,7 @@ function view(
   rule: IndicatorRule,
 ): IndicatorView {
   const { followed, newest } = state;
-  const law = lawOf(state);
+  const law = lawOf(state.laws);
   const learned = newest !== null && state.laws[law][newest.mode].healthy.kept;
   let reason: IndicatorReason | null = null;
   if (channels === 0) reason = 'not_instrumented';
@@ -126,19 +120,6 @@ function view(
     sentence: sentence(unit, state, law, channels, rule),
   });
 }
-
-const byMode = (begun_ms: number | null = null): Record<Mode, Learned> => ({
-  charge: startLearned(begun_ms),
-  stand: startLearned(begun_ms),
-  discharge: startLearned(begun_ms),
-});
-
-function startLearned(begun_ms: number | null): Learned {
-  return { healthy: { ...startBaseline(), begun_ms }, first: 0, sum: 0, squares: 0 };
-}
-
-const baselinesOf = ({ laws }: GasInventoryState): BaselineState[] =>
-  LAWS.flatMap((law) => MODES.map((mode) => laws[law][mode].healthy));
 
 /** Pressures that no sound plant has: of a transmitter or a configuration that is wrong, never learned. */
 const isBeyond = (lnPressure: number): boolean => lnPressure > 2 * WIDE_SIGMA;
@@ -211,28 +192,6 @@ function lnContents({ model, state }: IndicatorInput, channels: readonly Pressur
   return Math.log(sum);
 }
 
-/** The law with the less scatter about its own means; `held` until three values of a mode are known. */
-function lawOf({ laws }: GasInventoryState): Law {
-  const scatter = (law: Law): number => {
-    let sum = 0;
-    for (const mode of MODES) {
-      const { healthy, sum: s, squares } = laws[law][mode];
-      if (healthy.count >= 3) sum += squares - (s * s) / healthy.count;
-    }
-    return sum;
-  };
-  return scatter('closed') < scatter('held') ? 'closed' : 'held';
-}
-
-/**
- * Healthy ln of a law in a mode. Pressures above what the configuration allows are no norm, and neither is
- * that bound, as it is not on the safe side: put right, they would count as lost. The configured ones stay.
- */
-function healthyOf({ healthy }: Learned, configured: Healthy): Healthy {
-  const known = healthyBy(healthy, { configured, baseline: RULE });
-  return known.sigma === 0 && known.value > configured.value ? configured : known;
-}
-
 function take(
   state: GasInventoryState,
   lnPressure: number,
@@ -245,7 +204,7 @@ function take(
   const ln = lnContents(input, channels);
   const values = { held: lnPressure, closed: lnPressure + ln };
   // With less than two values it is not known which law it is, and only pressures are configured.
-  const law = state.laws.held[mode].healthy.count < 2 ? 'held' : lawOf(state);
+  const law = state.laws.held[mode].healthy.count < 2 ? 'held' : lawOf(state.laws);
   const learned = state.laws[law][mode];
   const { healthy, sum, squares } = learned;
   const { followed } = state;

@@ -34,6 +34,18 @@ describe('valve leak', () => {
     expect(cold!.state).not.toBe('degraded');
   });
 
+  it('is over only below its limit less the deadband', () => {
+    const rig = new Rig(VALVE_LEAK, demo, 600);
+    const leaking = (share: number, hours: number) => {
+      for (const k of [0, 1, 2]) learn(rig, k, share * MOST, 0.01);
+      return rig.run(hours, () => STAND)[0]!;
+    };
+    expect(leaking(0.005, 24)).toMatchObject({ state: 'degraded' });
+    // Limit 0.25 %, deadband 0.1 %: nearer to healthy than to the limit, not than to what is back.
+    expect(leaking(0.0014, 72)).toMatchObject({ state: 'degraded' });
+    expect(leaking(0, 48)).toMatchObject({ state: 'normal', limit: 0.0025 });
+  });
+
   it('takes no notice of the outermost tube, whose rock cools through the wall', () => {
     const rig = new Rig(VALVE_LEAK);
     for (const k of [0, 1]) learn(rig, k, 0.001, 0.009);
