@@ -5,11 +5,11 @@ import { hoursOf } from './dispatch/unitHours.js';
 import type { DispatchAnswer, Estimate, ProfileView } from './estimate.js';
 import type { Scan } from './scan/scan.js';
 import type { ScanCounts } from './scanCounts.js';
+import { requireShape, requireStoreFits } from './storeFits.js';
 import { startConditions } from './track/conditions.js';
 import { startGasMemories } from './track/gasDoubts.js';
 import { type StoreState, startStore } from './track/storeTracker.js';
 import { startViews } from './track/storeViews.js';
-import type { TubeState } from './track/tube.js';
 import { describe } from './unitDescribe.js';
 import { unitModel } from './unitModel.js';
 import type { UnitState } from './unitState.js';
@@ -48,7 +48,7 @@ export interface UnitSnapshot {
   readonly state: UnitState;
 }
 
-const SNAPSHOT_VERSION = 5;
+export const SNAPSHOT_VERSION = 5;
 const NOTHING: UnitAsk = { hours_at_W: [], profile: false };
 /** Longest run of empty scans that a gap is filled with; a longer gap takes coarser ones. */
 const TICKS_MOST = 720;
@@ -140,7 +140,12 @@ export function saveUnit(state: UnitState): UnitSnapshot {
   return { version: SNAPSHOT_VERSION, state: structuredClone(state) };
 }
 
-/** @throws RangeError where the snapshot is of another version or another unit's shape */
+/**
+ * The state that was saved. Where it is of another INDICATORS_VERSION the indicators begin anew:
+ * `lostToVersion` tells which.
+ *
+ * @throws RangeError where the snapshot is of another version or another unit's shape
+ */
 export function restoreUnit(unit: UnitDefinition, snapshot: UnitSnapshot): UnitState {
   if (snapshot.version !== SNAPSHOT_VERSION) {
     throw new RangeError(`snapshot version ${snapshot.version}: expected ${SNAPSHOT_VERSION}`);
@@ -149,22 +154,7 @@ export function restoreUnit(unit: UnitDefinition, snapshot: UnitSnapshot): UnitS
   const { stores } = snapshot.state;
   requireShape(`unit ${unit.id}`, 'stores', stores.length, model.stores.length);
   model.stores.forEach((store, s) => {
-    const { tubes, sensors, wall } = stores[s] as StoreState;
-    const name = `store ${store.store.id}`;
-    requireShape(name, 'strings', tubes.length, store.tubes.length);
-    requireShape(
-      name,
-      'layers at the wall',
-      wall?.enthalpy?.length ?? 0,
-      store.wall?.layers.length ?? 0,
-    );
-    store.tubes.forEach(({ string, layout }, k) => {
-      const tube = tubes[k] as TubeState;
-      const own = `string ${string.id}`;
-      requireShape(own, 'cells', tube.enthalpy.length, layout.cells);
-      requireShape(own, 'thermocouples', sensors[k]?.length, layout.sensors);
-      requireShape(own, 'elements of covariance', tube.covariance.length, layout.size ** 2);
-    });
+    requireStoreFits(store, stores[s] as StoreState);
   });
   // One saved before inlet gas was looked at has nothing of it.
   const saved: Omit<UnitState, 'gas'> & Partial<UnitState> = structuredClone(snapshot.state);
@@ -173,11 +163,6 @@ export function restoreUnit(unit: UnitDefinition, snapshot: UnitSnapshot): UnitS
     saved.watch.indicators_version = INDICATORS_VERSION;
   }
   return { ...saved, gas: saved.gas ?? model.stores.map(startGasMemories) };
-}
-
-function requireShape(of: string, what: string, found: number | undefined, expected: number): void {
-  if (found === expected) return;
-  throw new RangeError(`snapshot of ${of}: has ${found} ${what}, expected ${expected}`);
 }
 
 /** Hours and energy at given powers [W] from the present state. */

@@ -14,6 +14,8 @@ import {
   type UnitState,
   type UnitStep,
 } from '../core/unit.js';
+import { carryUnit, type UnitCarry } from '../core/unitCarry.js';
+import type { UnitShape } from '../core/unitShape.js';
 import { type UnitWorth, unitWorth } from '../core/worth/unitWorth.js';
 
 /** What the daemon needs of the core; a test may put something small in its place. */
@@ -22,6 +24,12 @@ export interface Core {
   advance(unit: UnitDefinition, state: UnitState, scan: Scan, ask: UnitAsk): UnitStep;
   saveUnit(state: UnitState): UnitSnapshot;
   restoreUnit(unit: UnitDefinition, snapshot: UnitSnapshot): UnitState;
+  carryUnit(
+    unit: UnitDefinition,
+    fresh: UnitState,
+    saved: UnitSnapshot,
+    shape: UnitShape,
+  ): UnitCarry;
   hoursAt(unit: UnitDefinition, state: UnitState, powers_W: readonly number[]): DispatchAnswer[];
   answerPlan(unit: UnitDefinition, state: UnitState, question: PlanQuestion): PlanAnswer;
   unitWorth(unit: UnitDefinition, state: UnitState | null): Generator<number, UnitWorth | null>;
@@ -33,6 +41,7 @@ export const realCore: Core = {
   advance,
   saveUnit,
   restoreUnit,
+  carryUnit,
   hoursAt,
   answerPlan,
   unitWorth,

@@ -16,6 +16,8 @@ const OWN_COUNTS = [
   'scans_skipped',
   /** Scans on which the estimator failed; it went on from its last sound state. */
   'scan_failures',
+  /** Indicators that began anew at a start: what was learned as healthy for them is lost. */
+  'baselines_lost',
   /** Thermocouples of all scans by what became of them, and what they are together. */
   'thermocouples',
   'thermocouples_used',

@@ -59,8 +59,19 @@ export function unitHealth(
   if (failure !== undefined) return { name, ok: false, detail: `the last scan failed: ${failure}` };
   const ahead =
     future === 0 ? '' : `; ${future} readings stamped ahead of this machine's clock were not used`;
-  if (runner.newest_ms === null) return { name, ok: false, detail: `no reading yet${ahead}` };
+  const told = `${ahead}${lostAtStart(runner.lost)}`;
+  if (runner.newest_ms === null) return { name, ok: false, detail: `no reading yet${told}` };
   const age_s = Math.max(0, (clock.now() - runner.newest_ms) / 1000);
   const ok = age_s <= runner.unit.watch.data_age_s.limit;
-  return { name, ok, detail: `newest reading ${Math.round(age_s)} s old${ahead}` };
+  return { name, ok, detail: `newest reading ${Math.round(age_s)} s old${told}` };
+}
+
+/** Names told in full; the log has them all. */
+const NAMES_MOST = 3;
+
+function lostAtStart(lost: readonly string[]): string {
+  if (lost.length === 0) return '';
+  const more = lost.length > NAMES_MOST ? ` and ${lost.length - NAMES_MOST} more` : '';
+  const names = lost.slice(0, NAMES_MOST).join(', ');
+  return `; what was healthy was lost at this start and is learned anew: ${names}${more}`;
 }

@@ -244,10 +244,10 @@ export class Pipeline {
 
   private checkpointIfDue(runner: UnitRunner, time_ms: number): void {
     const due = this.nextCheckpoint.get(runner.unit.id);
-    if (due !== undefined && time_ms < due) return;
+    if (due !== undefined && time_ms < due && !runner.unsaved) return;
     this.nextCheckpoint.set(runner.unit.id, time_ms + this.options.checkpoint_every_ms);
     // The first of this process would only repeat the one that it was restored from.
-    if (due !== undefined) this.save(runner);
+    if (due !== undefined || runner.unsaved) this.save(runner);
   }
 
   private save(runner: UnitRunner): void {
@@ -257,6 +257,7 @@ export class Pipeline {
     try {
       history.write(() => {
         history.checkpoints.add(runner.unit, checkpoint);
+        runner.unsaved = false;
         if (runner.view.profile) history.estimates.addProfile(runner.view.profile, true);
       });
     } catch (thrown) {

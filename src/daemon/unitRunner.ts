@@ -16,7 +16,10 @@ import { PlantClock } from '../core/scan/plantClock.js';
 import type { Scan } from '../core/scan/scan.js';
 import type { ScanCounts } from '../core/scanCounts.js';
 import type { UnitSnapshot, UnitState, UnitStep } from '../core/unit.js';
+import type { UnitCarry } from '../core/unitCarry.js';
+import { shapeOf, type UnitShape } from '../core/unitShape.js';
 import { alignWatch } from '../core/watch/align.js';
+import { lostToVersion } from '../core/watch/carry.js';
 import type { WatchView } from '../core/watch/causes.js';
 import type { Core } from './core.js';
 
@@ -24,6 +27,16 @@ import type { Core } from './core.js';
 interface RunnerImage {
   readonly unit: UnitSnapshot;
   readonly assembler: AssemblerSnapshot;
+  /** Of the definition it was saved under; absent in one saved before it was told. */
+  readonly shape?: UnitShape;
+}
+
+/** A state saved under another definition, to be taken over where the journal has come to its time. */
+interface Awaited {
+  readonly image: Required<RunnerImage>;
+  readonly time_ms: number;
+  /** `KIND/SUBJECT` of what is told as raised. */
+  readonly standing: ReadonlySet<string>;
 }
 
 export interface RunnerStep {
@@ -65,6 +78,11 @@ export class UnitRunner {
   private readonly finish;
   /** Entries up to this number are in the state. */
   private taken_seq = 0;
+  private awaited: Awaited | null = null;
+  /** A saved state was taken over, and is in no checkpoint of this definition yet. */
+  unsaved = false;
+  /** `INDICATOR/SUBJECT` of what was learned as healthy and lost at this start. */
+  lost: readonly string[] = [];
 
   constructor(
     readonly unit: UnitDefinition,
@@ -96,8 +114,11 @@ export class UnitRunner {
     this.taken_seq = seq;
   }
 
-  /** Throws where the checkpoint is damaged or does not fit this unit or this build. */
-  restore(checkpoint: StoredCheckpoint, steady_ms: number): void {
+  /**
+   * Throws where the checkpoint is damaged or does not fit this unit or this build.
+   * @returns the indicators that this build begins anew
+   */
+  restore(checkpoint: StoredCheckpoint, steady_ms: number): string[] {
     const image = checkpoint.load() as RunnerImage;
     const assembler = new Assembler(this.unit, this.options, this.finish);
     assembler.restore(image.assembler);
@@ -106,14 +127,41 @@ export class UnitRunner {
     this.taken_seq = checkpoint.journal_seq;
     // A plant that stays silent from here on still sees its scans close.
     if (assembler.newest !== null) this.plantClock.observe(assembler.newest, steady_ms);
+    // A core of a test may watch nothing.
+    const { watch } = image.unit.state as Partial<UnitState>;
+    return watch ? lostToVersion(watch) : [];
   }
 
-  /** The whole state; null before the first scan. */
+  /**
+   * What a checkpoint of another definition holds good for. Throws where it is damaged, of another
+   * build, or does not tell its definition.
+   */
+  weigh(checkpoint: StoredCheckpoint): UnitCarry {
+    const { unit, shape } = describedImage(checkpoint);
+    return this.core.carryUnit(this.unit, this.core.startUnit(this.unit), unit, shape);
+  }
+
+  /**
+   * Starts behind an entry of the journal, and takes over what `weigh` told of once it has come to the
+   * checkpoint's time. Until then nothing is told of the scans, which were told when they came.
+   */
+  takeOverLater(
+    checkpoint: StoredCheckpoint,
+    from_seq: number,
+    standing: ReadonlySet<string>,
+  ): void {
+    const image = describedImage(checkpoint);
+    this.awaited = { image, time_ms: checkpoint.time_ms, standing };
+    this.startAt(from_seq);
+  }
+
+  /** The whole state; null before the first scan, and before a saved one is taken over. */
   checkpoint(): Checkpoint | null {
-    if (this.state.time_ms === null) return null;
+    if (this.state.time_ms === null || this.awaited !== null) return null;
     const image: RunnerImage = {
       unit: this.core.saveUnit(this.state),
       assembler: this.assembler.save(),
+      shape: shapeOf(this.unit),
     };
     return { time_ms: this.state.time_ms, journal_seq: this.taken_seq, image };
   }
@@ -152,15 +200,28 @@ export class UnitRunner {
     const closed = this.assembler.take();
     if (!closed) return null;
     const { scan } = closed;
+    if (this.awaited !== null && scan.time_ms > this.awaited.time_ms) this.takeOver(this.awaited);
     const isDue = this.core.hoursDue(this.unit, this.state.time_ms, scan.time_ms);
     const ask = { hours_at_W: isDue ? this.unit.hours_at_W : [], profile: true };
     const step = this.core.advance(this.unit, this.state, scan, ask);
     const { estimate, profile } = step;
+    if (this.awaited !== null) {
+      const measured = measuredIn(this.unit, scan, estimate);
+      return { closed, step: { estimate, profile, events: [] }, measured };
+    }
     const measured = measuredIn(this.unit, scan, estimate);
     Object.assign(this.view, { estimate, profile, measured, counts: step.counts ?? null });
     if (step.watch) this.view.watch = step.watch;
     if (estimate.dispatch) this.view.dispatch = { time: estimate.time, answers: estimate.dispatch };
     return { closed, step, measured };
+  }
+
+  private takeOver({ image, standing }: Awaited): void {
+    this.awaited = null;
+    const { state } = this.core.carryUnit(this.unit, this.state, image.unit, image.shape);
+    alignWatch(state.watch, standing);
+    this.state = state;
+    this.unsaved = true;
   }
 
   /** After a failure of the core: back to a sound state, or to none; time passes on from there. */
@@ -173,6 +234,12 @@ export class UnitRunner {
     const { watch } = this.state as Partial<UnitState>;
     if (watch) alignWatch(watch, standing);
   }
+}
+
+function describedImage(checkpoint: StoredCheckpoint): Required<RunnerImage> {
+  const { shape, ...image } = checkpoint.load() as RunnerImage;
+  if (shape === undefined) throw new RangeError('it does not tell its definition');
+  return { ...image, shape };
 }
 
 /** Flow (positive while charging) and net power as measured in a scan. */

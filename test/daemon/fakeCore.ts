@@ -80,6 +80,9 @@ export const fakeCore: Core = {
   },
   saveUnit: (state) => ({ version: 1, state: structuredClone(state) }) as UnitSnapshot,
   restoreUnit: (_unit, snapshot) => structuredClone(snapshot.state),
+  carryUnit: () => {
+    throw new RangeError('this core carries nothing over');
+  },
   answerPlan: () => {
     throw new RangeError('this core has no plan');
   },

@@ -1,6 +1,8 @@
 import { join } from 'node:path';
+import { deserialize } from 'node:v8';
 import SQLite from 'better-sqlite3';
 import { describe, expect, it } from 'vitest';
+import { formerFingerprint } from '../../src/adapters/history/checkpoints.js';
 import type { SiteConfig } from '../../src/config/site.js';
 import { NORMAL } from '../../src/core/alarm/state.js';
 import type { UnitDefinition } from '../../src/core/definitions.js';
@@ -25,6 +27,17 @@ function change(site: SiteConfig, sql: string): void {
   const database = new SQLite(join(site.store.folder, 'history.sqlite'));
   database.exec(sql);
   database.close();
+}
+
+/** What the newest checkpoint of a stopped daemon holds. */
+function lastImage(site: SiteConfig): unknown {
+  const database = new SQLite(join(site.store.folder, 'history.sqlite'));
+  const image = database
+    .prepare(`SELECT image FROM checkpoints WHERE time = ${LAST}`)
+    .pluck()
+    .get();
+  database.close();
+  return deserialize(image as Buffer);
 }
 
 /** A site whose daemon has taken in 80 scans, with checkpoints every ten, and was stopped. */
@@ -104,7 +117,7 @@ describe('a daemon that was killed', () => {
     };
     change(site, `INSERT INTO alarms VALUES (${standing}, '${JSON.stringify(event)}')`);
     const [unit] = site.units;
-    const changed = { ...unit, hours_at_W: [2e6] } as UnitDefinition;
+    const changed = { ...unit, rated_hours: 7 } as UnitDefinition;
     const daemon = makeDaemon({ ...site, units: [changed] });
     await daemon.start();
     expect(daemon.service.standing()).toMatchObject([{ state: 'returned_unacknowledged' }]);
@@ -112,7 +125,35 @@ describe('a daemon that was killed', () => {
       { transition: 'returned', message: expect.stringContaining('started afresh') },
     ]);
     expect(count(daemon, 'scans')).toBe(80);
+    // A loss of what was learned is counted, and told by name.
+    expect(count(daemon, 'baselines_lost')).toBe(1);
+    expect(daemon.service.health().find(({ name }) => name === 'unit u')?.detail).toContain(
+      'what was healthy was lost at this start and is learned anew: every indicator',
+    );
     await daemon.stop();
+  });
+
+  it('with another name, limits, watch or asked powers goes on from its checkpoint, to the bit', async () => {
+    const site = await worked();
+    const saved = lastImage(site);
+    const [unit] = site.units as [UnitDefinition];
+    const edited: UnitDefinition = {
+      ...unit,
+      name: 'Renamed',
+      hours_at_W: [2e6],
+      limits: { ...unit.limits, hot_outlet_min_K: 600, availability: 0.9 },
+      watch: { ...unit.watch, data_age_s: { ...unit.watch.data_age_s, limit: 500 } },
+    };
+    const counters = await restarted({ ...site, units: [edited] });
+    expect(counters).toMatchObject({ scans: 0, baselines_lost: 0 });
+    expect(lastImage(site)).toEqual(saved);
+  });
+
+  it('goes on from a checkpoint of a build that took a print of the whole definition', async () => {
+    const site = await worked();
+    const former = formerFingerprint(site.units[0] as UnitDefinition);
+    change(site, `UPDATE checkpoints SET fingerprint = '${former}'`);
+    expect(await restarted(site)).toMatchObject({ scans: 0, baselines_lost: 0 });
   });
 });
 

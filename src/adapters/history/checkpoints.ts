@@ -1,6 +1,7 @@
 import { createHash } from 'node:crypto';
 import { deserialize, serialize } from 'node:v8';
 import type { UnitDefinition } from '../../core/definitions.js';
+import { shapeOf } from '../../core/unitShape.js';
 import type { Database } from './database.js';
 
 /** Newest checkpoints kept of each unit. */
@@ -20,12 +21,18 @@ export interface StoredCheckpoint extends Omit<Checkpoint, 'image'> {
   load(): unknown;
 }
 
-/**
- * A short print of a unit's definition: a state saved under another one may not fit. Functions
- * (material laws) do not print, their names and tables do.
- */
+/** A short print of what shapes a unit's state: one saved under another one does not fit as it is. */
 export function fingerprint(unit: UnitDefinition): string {
-  return createHash('sha256').update(JSON.stringify(unit)).digest('hex').slice(0, 16);
+  return printOf(shapeOf(unit));
+}
+
+/** Of the whole definition, as checkpoints had it before: those of an unchanged unit still fit. */
+export function formerFingerprint(unit: UnitDefinition): string {
+  return printOf(unit);
+}
+
+function printOf(content: object): string {
+  return createHash('sha256').update(JSON.stringify(content)).digest('hex').slice(0, 16);
 }
 
 /** Saved states of units, as Node's structured clone format in a blob. */
@@ -50,14 +57,27 @@ export class Checkpoints {
     })();
   }
 
-  /** Checkpoints of a unit, newest first, without those of another definition of it. */
+  /** Checkpoints of a unit, newest first, that were saved under a definition of the same shape. */
   list(unit: UnitDefinition): StoredCheckpoint[] {
+    return this.select(unit, 'IN');
+  }
+
+  /** Those saved under another one, newest first. */
+  ofOtherShape(unit: UnitDefinition): StoredCheckpoint[] {
+    return this.select(unit, 'NOT IN');
+  }
+
+  private select(unit: UnitDefinition, which: 'IN' | 'NOT IN'): StoredCheckpoint[] {
     const rows = this.database
       .prepare(
-        `SELECT time, journal_seq, image FROM checkpoints WHERE unit = ? AND fingerprint = ?
-         ORDER BY journal_seq DESC`,
+        `SELECT time, journal_seq, image FROM checkpoints
+         WHERE unit = ? AND fingerprint ${which} (?, ?) ORDER BY journal_seq DESC`,
       )
-      .all(unit.id, fingerprint(unit)) as { time: number; journal_seq: number; image: Buffer }[];
+      .all(unit.id, fingerprint(unit), formerFingerprint(unit)) as {
+      time: number;
+      journal_seq: number;
+      image: Buffer;
+    }[];
     return rows.map((row) => ({
       time_ms: row.time,
       journal_seq: row.journal_seq,

@@ -250,11 +250,15 @@ describe('checkpoints', () => {
     history.stop();
   });
 
-  it('of another definition of the unit are not given', () => {
+  it('of another shape of the unit are told apart from its own', () => {
     const history = opened();
     history.checkpoints.add(unit, { time_ms: T, journal_seq: 1, image: 1 });
-    const changed = { ...unit, hours_at_W: [2e6] };
+    const named = { ...unit, name: 'Another', hours_at_W: [2e6] };
+    expect(history.checkpoints.list(named)).toHaveLength(1);
+    expect(history.checkpoints.ofOtherShape(named)).toEqual([]);
+    const changed = { ...unit, scan_period_s: 5 };
     expect(history.checkpoints.list(changed)).toEqual([]);
+    expect(history.checkpoints.ofOtherShape(changed).map((one) => one.load())).toEqual([1]);
     expect(history.checkpoints.hasAny('u')).toBe(true);
     history.stop();
   });
