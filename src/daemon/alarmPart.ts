@@ -7,10 +7,11 @@ import {
   type CommandFault,
   isFault,
   readCommand,
+  staleFault,
 } from '../core/alarm/command.js';
 import { type AlarmEntry, inOrder } from '../core/alarm/entry.js';
 import { WINDOW_MS } from '../core/alarm/flood.js';
-import { hasSubject, readId } from '../core/alarm/ids.js';
+import { readId, subjectsOf } from '../core/alarm/ids.js';
 import { type AlarmReport, alarmReport } from '../core/alarm/report.js';
 import { isHeldBack } from '../core/alarm/state.js';
 import type { UnitDefinition } from '../core/definitions.js';
@@ -19,6 +20,7 @@ import { reasonOf } from '../errors.js';
 import type { Log } from '../log.js';
 import type { DaemonClock } from './clock.js';
 import type { Counters } from './counters.js';
+import { DATABASE } from './databaseWatch.js';
 import type { Notices } from './notices.js';
 
 export const DEFAULT_ALARMS: AlarmsConfig = { shelve_most_h: 8, out_of_service: [], latching: [] };
@@ -156,13 +158,16 @@ export class AlarmPart {
   }
 
   /** What is wrong with a sound command for this plant. */
-  private faultOf({ id, action }: AlarmCommand, unit: string | null): CommandFault | null {
+  private faultOf(command: AlarmCommand, unit: string | null): CommandFault | null {
+    const { id, action } = command;
+    const { history, clock } = this.options;
     const wrong = (expected: string): CommandFault => {
       return { code: 'unknown_event', field: 'id', value: id, expected };
     };
     if (unit !== null && !id.startsWith(`${unit}/`))
       return wrong(`an id that begins with ${unit}/`);
-    if (this.options.history.alarms.has(id)) return null;
+    const stale = staleFault(command, history.alarms.entry(id), clock.now());
+    if (stale !== null || history.alarms.has(id)) return stale;
     if (action === 'acknowledge' || action === 'reset' || action === 'unshelve') {
       const ids = this.entries(unit ?? undefined).map((entry) => entry.id);
       return wrong(
@@ -175,8 +180,14 @@ export class AlarmPart {
     const definition = this.options.units.find((one) => one.id === parts?.unit);
     if (parts === null || definition === undefined)
       return wrong('UNIT/KIND/SUBJECT with a unit of this site and a known kind');
-    if (parts.kind === 'database_unreachable' || hasSubject(definition, parts.subject)) return null;
-    return wrong(`a subject of ${parts.unit}: a store, string, thermocouple or channel`);
+    const subjects = subjectsOf(definition, parts.kind, [DATABASE]);
+    if (subjects.includes(parts.subject)) return null;
+    const start = `${parts.unit}/${parts.kind}/`;
+    return wrong(
+      subjects.length === 0
+        ? `another kind: ${parts.unit} has nothing that ${parts.kind} is raised of`
+        : `${start} and one of ${subjects.slice(0, MOST_NAMED).join(', ')}`,
+    );
   }
 
   private passTime(): void {

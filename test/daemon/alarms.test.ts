@@ -128,7 +128,7 @@ describe('commands from the plant`s own system', () => {
       expected: 'a name of 1 to 64 characters',
     });
     expect(await fault({ ...WORD, action: 'shelve', hours: 9 })).toMatchObject({
-      ...{ field: 'hours', value: 9, expected: 'a number above 0 and at most 8' },
+      ...{ field: 'hours', value: 9, expected: 'a number from 1/60 (a minute) to 8' },
     });
     expect(await fault({ ...WORD, id: 'v/front_spread/hot', action: 'acknowledge' })).toMatchObject(
       {
@@ -141,13 +141,19 @@ describe('commands from the plant`s own system', () => {
     expect(
       await fault({ ...WORD, id: 'u/gas_lost/nowhere', action: 'out_of_service' }),
     ).toMatchObject({
-      ...{ code: 'unknown_event', expected: expect.stringContaining('a subject of u') },
+      ...{ code: 'unknown_event', expected: 'u/gas_lost/ and one of u' },
+    });
+    for (const id of ['u/database_unreachable/x', 'u/front_spread/u', 'u/sensor_rejected/a'])
+      expect(await fault({ ...WORD, id, action: 'out_of_service' })).toMatchObject({ field: 'id' });
+    const time = new Date(Date.now() - 6 * 60_000).toISOString();
+    expect(await fault({ ...WORD, action: 'acknowledge', time })).toMatchObject({
+      ...{ field: 'time', value: time, expected: expect.stringMatching(/at most 5 min before/) },
     });
     expect(await fault({ ...WORD, action: 'unshelve' })).toMatchObject({
       ...{ code: 'wrong_state', field: 'action', value: 'unshelve' },
       expected: 'an action that fits: it is not shelved',
     });
-    expect(count(daemon, 'alarm_commands_refused')).toBe(6);
+    expect(count(daemon, 'alarm_commands_refused')).toBe(10);
     expect(await fault('{"id"')).toMatchObject({
       value: '{"id"',
       expected: expect.stringMatching(/^JSON/),

@@ -1,4 +1,5 @@
 import type { CommandFault } from '../../core/alarm/command.js';
+import { RockhourError, reasonOf } from '../../errors.js';
 import type { Delivery } from './link.js';
 
 /** What became of a command: followed, with the state it led to, or the fault. */
@@ -26,11 +27,13 @@ const SHOWN = 120;
 /**
  * Commands about alarms from the plant's own system:
  *
- * - `PREFIX/UNIT/alarms/command`  `{"id", "action", "who", "hours"?, "why"?}`
+ * - `PREFIX/UNIT/alarms/command`  `{"id", "action", "who", "hours"?, "why"?, "time"?}`
  * - `PREFIX/UNIT/alarms/answer`   `{"time", "unit", "accepted", "state", "fault", "command"}`
  *
  * Every command is answered; it is acknowledged to the broker once it has been followed and is on the
- * disk. A retained one is refused: the broker would hand it out again at each connection.
+ * disk. What the broker kept as retained is refused when it hands it out at a connection; published
+ * while connected such a message cannot be told from another, and is followed. What waited at the broker
+ * through an outage is followed as well, unless `time` says that it is stale.
  */
 export class AlarmCommands {
   private readonly unitOf: ReadonlyMap<string, string>;
@@ -76,13 +79,15 @@ export class AlarmCommands {
     try {
       command = JSON.parse(text);
     } catch {
-      return refuse('JSON {"id", "action", "who", "hours", "why"}');
+      return refuse('JSON {"id", "action", "who", "hours", "why", "time"}');
     }
     try {
       return { command, result: follow(command, unit) };
     } catch (thrown) {
-      const said = thrown instanceof Error ? thrown.message : String(thrown);
-      return { command, result: refused(null, null, `a disk that takes it: ${said}`) };
+      const said = reasonOf(thrown);
+      const wanted =
+        thrown instanceof RockhourError ? 'a disk that takes it' : 'no fault of rockhour';
+      return { command, result: refused(null, null, `${wanted}: ${said}`) };
     }
   }
 

@@ -20,21 +20,54 @@ export function isKind(text: string | undefined): text is EventKind {
   return (EVENT_KINDS as readonly (string | undefined)[]).includes(text);
 }
 
+type Subjects = (unit: UnitDefinition, services: readonly string[]) => string[];
+
+const UNIT: Subjects = ({ id }) => [id];
+const STORES: Subjects = ({ stores }) => stores.map(({ id }) => id);
+const STRINGS: Subjects = ({ stores }) =>
+  stores.flatMap(({ id, strings }) => strings.map((string) => `${id}/${string.id}`));
+
+/** What each kind can be raised of, as the watch raises it. */
+const SUBJECTS: Readonly<Record<EventKind, Subjects>> = {
+  outlet_near_limit: STORES,
+  pressure_drop_near_limit: STORES,
+  estimate_blind: UNIT,
+  data_stale: UNIT,
+  front_spread: STORES,
+  sensor_rejected: ({ stores }) =>
+    stores.flatMap(({ id, strings }) => [
+      id,
+      ...strings.flatMap((string) => string.thermocouples.map((one) => one.id)),
+    ]),
+  front_view_disagrees: STRINGS,
+  gas_temperature_off: ({ channels }) =>
+    channels.filter(({ role }) => role.kind === 'gas_temperature').map(({ id }) => id),
+  database_unreachable: (_, services) => [...services],
+  heat_transfer_low: STORES,
+  string_flow_uneven: STRINGS,
+  front_travel_off: STORES,
+  standing_loss_high: STORES,
+  valve_leaks: STORES,
+  pressure_drop_high: STORES,
+  plateau_off: STORES,
+  gas_lost: UNIT,
+  bed_settled: STORES,
+  stores_mismatched: UNIT,
+  energy_lost: UNIT,
+};
+
 /**
- * Whether something of this unit goes by this name: the unit, a store, a string (alone or with its
- * store), a thermocouple, another channel.
+ * All that a kind of alarm or alert can be raised of in a unit: nothing else can be shelved or taken out
+ * of service, so that what is held back is bounded by the plant and not by what is asked.
+ *
+ * @param services that the daemon watches beside its units, by the names they are raised under
  */
-export function hasSubject({ id, stores, channels }: UnitDefinition, subject: string): boolean {
-  if (subject === id || channels.some((channel) => channel.id === subject)) return true;
-  return stores.some((store) => {
-    if (subject === store.id) return true;
-    return store.strings.some(
-      (string) =>
-        subject === string.id ||
-        subject === `${store.id}/${string.id}` ||
-        string.thermocouples.some((one) => one.id === subject),
-    );
-  });
+export function subjectsOf(
+  unit: UnitDefinition,
+  kind: EventKind,
+  services: readonly string[],
+): string[] {
+  return SUBJECTS[kind](unit, services);
 }
 
 /**

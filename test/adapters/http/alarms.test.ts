@@ -71,8 +71,8 @@ describe('alarms over HTTP', () => {
   });
 
   it.each([
-    ['shelve', { ...WORD, hours: 9 }, 400, 'hours', /a number above 0 and at most 8/],
-    ['shelve', { ...WORD, hours: -1 }, 400, 'hours', /above 0/],
+    ['shelve', { ...WORD, hours: 9 }, 400, 'hours', /a number from 1\/60 \(a minute\) to 8/],
+    ['shelve', { ...WORD, hours: -1 }, 400, 'hours', /a minute/],
     ['shelve', { who: 'a', hours: 1 }, 400, 'why', /the reason/],
     ['out-of-service', { why: 'x' }, 400, 'who', /a name of 1 to 64/],
     ['unshelve', { who: 'a' }, 409, 'action', /it is not shelved/],

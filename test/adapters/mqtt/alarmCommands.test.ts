@@ -1,6 +1,7 @@
 import { describe, expect, it } from 'vitest';
 import { AlarmCommands } from '../../../src/adapters/mqtt/alarmCommands.js';
 import type { Delivery } from '../../../src/adapters/mqtt/link.js';
+import { RockhourError } from '../../../src/errors.js';
 
 function made(change: Partial<ConstructorParameters<typeof AlarmCommands>[0]> = {}) {
   const done: string[] = [];
@@ -63,7 +64,7 @@ describe('alarm commands over MQTT', () => {
   it('say so where the disk does not take them, and count an answer that cannot be sent', () => {
     const { deliver, done } = made({
       follow: () => {
-        throw new Error('disk full');
+        throw new RockhourError('STORE_FAILED', 'disk full');
       },
     });
     deliver('rockhour/u/alarms/command', '{}');
@@ -71,6 +72,13 @@ describe('alarm commands over MQTT', () => {
       'rockhour/u/alarms/answer a disk that takes it: disk full',
       'acknowledged',
     ]);
+    const broken = made({
+      follow: () => {
+        throw new RangeError('time_ms must be finite');
+      },
+    });
+    broken.deliver('rockhour/u/alarms/command', '{}');
+    expect(broken.done[0]).toMatch(/answer no fault of rockhour: .*time_ms must be finite/);
     const other = made({ answer: () => false });
     other.deliver('rockhour/u/alarms/command', '{}');
     expect(other.done).toEqual(['followed', 'lost', 'acknowledged']);

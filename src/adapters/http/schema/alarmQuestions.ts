@@ -1,5 +1,5 @@
 import { z } from 'zod';
-import { MOST_WHO, MOST_WHY } from '../../../core/alarm/command.js';
+import { LEAST_SHELF_H, MOST_WHO, MOST_WHY } from '../../../core/alarm/command.js';
 import { count, instant, MOST_EVENTS, unitName } from './questions.js';
 
 /** Schemas of what may be asked of alarms, and done to them. */
@@ -14,7 +14,7 @@ export const figuresQuery = z.strictObject({
 const EVENT_ID = 'the id of an alarm or alert';
 const WHO = `a name of 1 to ${MOST_WHO} characters`;
 const WHY = `the reason, 1 to ${MOST_WHY} characters`;
-const HOURS = 'a number of hours above 0, at most alarms.shelve_most_h of the configuration';
+const HOURS = 'a number of hours from 1/60 (a minute) to alarms.shelve_most_h of the configuration';
 
 const id = z
   .string({ error: EVENT_ID })
@@ -43,7 +43,12 @@ export const acknowledgeBody = z.strictObject(
 );
 
 export const shelveBody = z.strictObject(
-  { id, who, why, hours: z.number({ error: HOURS }).positive({ error: HOURS }).describe(HOURS) },
+  {
+    id,
+    who,
+    why,
+    hours: z.number({ error: HOURS }).min(LEAST_SHELF_H, { error: HOURS }).describe(HOURS),
+  },
   { error: 'an object {"id": ..., "who": ..., "hours": ..., "why": ...}' },
 );
 
