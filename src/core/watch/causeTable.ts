@@ -25,6 +25,8 @@ export interface CauseNote {
   readonly shows: Readonly<Partial<Record<IndicatorKind, number>>>;
   /** The same for the other store; where absent that is as with a sound plant. */
   readonly other?: Readonly<Partial<Record<IndicatorKind, number>>>;
+  /** Of `shows`, what is only a consequence: told with the cause's own alert, not as another one. */
+  readonly follows?: readonly IndicatorKind[];
   /** As a person says it. */
   readonly words: string;
   /** What to look at on site. */
@@ -33,6 +35,7 @@ export interface CauseNote {
 
 /** What follows from any trouble of a bed says little of which it is. */
 const FOLLOWS = { energy_lost: 0.4, store_mismatch: 0.3, front_view: 0.2 } as const;
+const OF_A_BED = ['spread_ratio', 'energy_lost', 'store_mismatch', 'front_view'] as const;
 
 /**
  * Causes with what they show. Chances are judgement from how each acts on the bed (which law of the
@@ -49,6 +52,7 @@ export const CAUSES: Readonly<Record<CauseKind, CauseNote>> = {
       spread_ratio: 0.7,
       string_flow: 0.2,
     },
+    follows: OF_A_BED,
     words: 'dust or fines in the bed',
     check: 'filters and screens of the gas loop, dust in a sample of the gas, rock at the manhole',
   },
@@ -62,6 +66,7 @@ export const CAUSES: Readonly<Record<CauseKind, CauseNote>> = {
       string_flow: 0.2,
       spread_ratio: 0.3,
     },
+    follows: OF_A_BED,
     words: 'frost in the cold bed',
     check:
       'the dew point of the gas, the dryer and its last regeneration, leaks that let in moist air',
@@ -76,6 +81,7 @@ export const CAUSES: Readonly<Record<CauseKind, CauseNote>> = {
       heat_transfer: 0.3,
       front_travel: 0.1,
     },
+    follows: OF_A_BED,
     words: 'gas that finds a channel through the bed',
     check:
       'the level and slope of the rock at the manhole, the distributor plates, and gaps along the wall',
@@ -85,6 +91,7 @@ export const CAUSES: Readonly<Record<CauseKind, CauseNote>> = {
     prior: 0.15,
     shows: { front_travel: 0.95, pressure_drop: 0.3, energy_lost: 0.1 },
     other: { front_travel: 0.95, pressure_drop: 0.3 },
+    follows: ['energy_lost'],
     words: 'the flow meter',
     check:
       'the zero of the flow meter, its impulse lines and its range; and rock that was exchanged',
@@ -93,6 +100,7 @@ export const CAUSES: Readonly<Record<CauseKind, CauseNote>> = {
     of: 'store',
     prior: 0.1,
     shows: { standing_loss: 0.95, valve_leak: 0.05, energy_lost: 0.2, store_mismatch: 0.2 },
+    follows: ['energy_lost', 'store_mismatch'],
     words: 'the insulation of the vessel',
     check:
       'the shell with an infrared camera, wet insulation, and lids and nozzles that are warm or iced',
@@ -101,6 +109,7 @@ export const CAUSES: Readonly<Record<CauseKind, CauseNote>> = {
     of: 'store',
     prior: 0.1,
     shows: { valve_leak: 0.95, standing_loss: 0.4, energy_lost: 0.2, store_mismatch: 0.2 },
+    follows: ['energy_lost', 'store_mismatch'],
     words: 'a valve that leaks while the unit stands',
     check:
       'the seats of the valves at this store, their end positions, and pipes that stay warm or cold',
@@ -109,6 +118,7 @@ export const CAUSES: Readonly<Record<CauseKind, CauseNote>> = {
     of: 'store',
     prior: 0.08,
     shows: { settling: 0.95, sensor_health: 0.3, string_flow: 0.15, front_view: 0.2 },
+    follows: ['front_view'],
     words: 'a bed that has settled',
     check: 'the level of the rock at the top manhole, and the thermocouples that hang free',
   },
@@ -117,6 +127,7 @@ export const CAUSES: Readonly<Record<CauseKind, CauseNote>> = {
     prior: 0.1,
     shows: { plateau: 0.95, front_travel: 0.05, energy_lost: 0.2 },
     other: { plateau: 0.5 },
+    follows: ['energy_lost'],
     words: 'the machine, its coolers or its pressures',
     check:
       'the coolers, the pressures before and behind the machine, and the gas thermometers at its ends',
@@ -140,6 +151,7 @@ export const CAUSES: Readonly<Record<CauseKind, CauseNote>> = {
     of: 'unit',
     prior: 0.1,
     shows: { store_mismatch: 0.95, energy_lost: 0.3 },
+    follows: ['energy_lost'],
     words: 'stores that have drifted apart over cycles',
     check: 'nothing on site; ask `rockhour balance` what charging one store longer would win back',
   },

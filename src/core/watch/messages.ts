@@ -3,6 +3,7 @@ import type { RejectedSensor, SensorVerdict } from '../estimate.js';
 import type { GasDoubt } from '../track/gasDoubts.js';
 import type { CauseView } from './causes.js';
 import { CAUSES } from './causeTable.js';
+import { waitingFor } from './consequences.js';
 import type { IndicatorView } from './indicator.js';
 
 /** Sentences for a tired person: what is the case, by how much, what it means, what to look at. */
@@ -168,7 +169,12 @@ export function indicatorRaised(view: IndicatorView, causes: readonly CauseView[
   const cause = causes.find((one) => one.subject === store || CAUSES[one.cause].of === 'unit');
   if (cause === undefined) return view.sentence;
   const sure = `${Math.round(100 * cause.probability)} %`;
-  return `${view.sentence} Probably ${CAUSES[cause.cause].words} (${sure}). On site: ${cause.check}.`;
+  const waiting = waitingFor(view, causes);
+  const follows =
+    waiting.length === 0
+      ? ''
+      : ` What follows from it has no alert of its own while this one stands: ${waiting.join(', ')}.`;
+  return `${view.sentence} Probably ${CAUSES[cause.cause].words} (${sure}). On site: ${cause.check}.${follows}`;
 }
 
 export function indicatorReturned(view: IndicatorView): string {

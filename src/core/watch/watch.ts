@@ -11,6 +11,7 @@ import {
   startCondition,
   stepEvidence,
 } from './condition.js';
+import { isConsequence, MAY_FOLLOW } from './consequences.js';
 import type { EventKind, WatchEvent } from './event.js';
 import type { IndicatorView } from './indicator.js';
 import { INDICATORS_VERSION, type IndicatorStates } from './indicators.js';
@@ -99,7 +100,7 @@ export function stepWatch(
     watchOutlet(unit, store, estimate, input.mode, step);
   }
   watchGas(input, step);
-  watchIndicators(input, step);
+  watchIndicators(state, input, step);
   return events;
 }
 
@@ -196,16 +197,34 @@ function watchGas({ gas = [] }: WatchInput, step: Step): void {
   }
 }
 
-/** What has been decided is active or clear; what is not known neither raises nor returns. */
-function watchIndicators({ indicators = [], causes = [] }: WatchInput, step: Step): void {
-  for (const view of indicators) {
+/**
+ * What has been decided is active or clear; what is not known neither raises nor returns. What only
+ * follows from a cause whose alert stands waits: it is looked at after those.
+ */
+function watchIndicators(
+  { conditions }: WatchState,
+  { indicators = [], causes = [] }: WatchInput,
+  step: Step,
+): void {
+  const stands = (view: IndicatorView): boolean =>
+    view.state === 'degraded' || isRaised(conditions, view);
+  const late = (view: IndicatorView): boolean => MAY_FOLLOW.has(view.kind);
+  for (const view of [...indicators.filter((v) => !late(v)), ...indicators.filter(late)]) {
     const kind = INDICATOR_EVENTS[view.kind];
     if (kind === undefined) continue;
     const { subject, state, value, limit } = view;
+    const waits =
+      state === 'degraded' &&
+      !isRaised(conditions, view) &&
+      isConsequence(view, indicators, causes, stands);
     const evidence =
-      state === 'degraded' ? 'active' : state === 'normal' ? 'clear' : ('unknown' as const);
+      waits || state === 'undetermined' ? 'unknown' : state === 'degraded' ? 'active' : 'clear';
     step(kind, subject, evidence, view, value, limit, (raised) =>
       raised ? say.indicatorRaised(view, causes) : say.indicatorReturned(view),
     );
   }
+}
+
+function isRaised(conditions: WatchState['conditions'], { kind, subject }: IndicatorView): boolean {
+  return conditions[`${INDICATOR_EVENTS[kind]}/${subject}`]?.raised ?? false;
 }
