@@ -1,6 +1,7 @@
 import { writeFileSync } from 'node:fs';
 import { join } from 'node:path';
 import type { Command } from 'commander';
+import { isStoreFault, storeFailure } from '../adapters/history/database.js';
 import { History } from '../adapters/history/history.js';
 import { gatherReport, thinning } from '../adapters/history/reportReader.js';
 import { REPORT_FORMATS, type ReportFormat, renderReport } from '../adapters/report/render.js';
@@ -38,8 +39,8 @@ function report(options: ReportOptions): void {
   const site = loadSite(options.config);
   const unit = chooseUnit(site, options.unit);
   const history = new History(join(site.store.folder, 'history.sqlite'), site.store);
-  history.startToRead();
   try {
+    history.startToRead();
     const data = gatherReport(history, unit, {
       ...{
         site: site.name,
@@ -58,6 +59,8 @@ function report(options: ReportOptions): void {
       );
     give(renderReport(data, format, table), options.out);
     if (options.out !== undefined) tell(data, options.out);
+  } catch (thrown) {
+    throw isStoreFault(thrown) ? storeFailure(`reading ${site.store.folder}`, thrown) : thrown;
   } finally {
     history.stop();
   }

@@ -3,7 +3,7 @@ import { hoursOf, stateOfCharge } from './dispatch/unitHours.js';
 import type { Estimate, ProfileView, Quality, StoreEstimate } from './estimate.js';
 import { countThermocouples, type ScanCounts } from './scanCounts.js';
 import { type GasDoubt, gasDoubts } from './track/gasDoubts.js';
-import { implausibleReadings } from './track/plausible.js';
+import { implausibleReadings, touchesEstimate } from './track/plausible.js';
 import { estimateStore, profileOf } from './track/storeEstimate.js';
 import type { StoreState } from './track/storeTracker.js';
 import { describeViews, type StoreViews, storeSpread } from './track/storeViews.js';
@@ -145,7 +145,8 @@ function qualityOf(
   if (sigma > BLIND_SIGMA) return 'blind';
   if (sigma > GOOD_SIGMA) return 'degraded';
   if (gas.some(({ doubtful }) => doubtful)) return 'degraded';
-  if (taken.implausible.length > 0 || taken.conditions.flowStandIn) return 'degraded';
+  if (touchesEstimate(model.unit, taken.implausible) || taken.conditions.flowStandIn)
+    return 'degraded';
   if (!taken.conditions.flowKnown || used < 0.6 * model.thermocouples.length || !settled) {
     return 'degraded';
   }

@@ -95,6 +95,8 @@ function migrate(database: Database, file: string, steps: Migrations): void {
 }
 
 const ADVICE: Readonly<Record<string, string>> = {
+  SQLITE_ERROR:
+    'The file is not as this rockhour makes it: it may be of a build in between. Set another store.folder.',
   SQLITE_FULL: 'The disk is full: make room. Readings wait at the broker until there is some.',
   SQLITE_CORRUPT:
     'The file is damaged: stop rockhour, keep the file for examination and start with another ' +
@@ -104,6 +106,11 @@ const ADVICE: Readonly<Record<string, string>> = {
   SQLITE_BUSY: 'Another process holds the file: only one rockhour may use a store.folder.',
   SQLITE_CANTOPEN: 'Check that store.folder exists and that its owner may write to it.',
 };
+
+/** Whether SQLite itself has failed. */
+export function isStoreFault(thrown: unknown): boolean {
+  return codeOf(thrown).startsWith('SQLITE');
+}
 
 /** What SQLite said, as an error of the catalogue. */
 export function storeFailure(what: string, thrown: unknown): RockhourError {

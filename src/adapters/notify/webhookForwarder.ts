@@ -174,7 +174,9 @@ export class WebhookForwarder {
       return answer.status;
     } catch (thrown) {
       // The client's own words are `fetch failed`; what happened is its cause.
-      throw thrown instanceof Error && thrown.cause instanceof Error ? thrown.cause : thrown;
+      throw inWords(
+        thrown instanceof Error && thrown.cause instanceof Error ? thrown.cause : thrown,
+      );
     } finally {
       clearTimeout(late);
       this.underWay = null;
@@ -194,4 +196,14 @@ export class WebhookForwarder {
     this.reason = reason;
     if (isNew) this.options.down(reason);
   }
+}
+
+/** OpenSSL tells of the lines of its own source; what matters is that nobody spoke TLS there. */
+function inWords(thrown: unknown): unknown {
+  const words = reasonOf(thrown);
+  if (!/SSL routines/.test(words)) return thrown;
+  const what = /wrong version number|packet length too long|http request/.test(words)
+    ? 'it answers without TLS: is it http, or another port?'
+    : (/SSL routines:[^:]*:([^:]*)/.exec(words)?.[1] ?? 'failed');
+  return new Error(`TLS: ${what}`);
 }

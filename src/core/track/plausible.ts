@@ -17,6 +17,11 @@ const AMBIENT_K: Range = [180, 340];
 /** Multiples of the greatest flow and power of the limits. */
 const FLOW_MOST = 3;
 const POWER_MOST = 5;
+/** Multiple of the store's own pressure; a gauge may read somewhat below 0. */
+const PRESSURE_MOST = 5;
+const PRESSURE_LEAST_PA = -5e4;
+/** Multiple of the greatest pressure drop allowed; without one it cannot exceed the store's pressure. */
+const DROP_MOST = 20;
 
 /** Kinds of channels that have such a range: why a reading of theirs is none. */
 export const IMPLAUSIBLE_KINDS = [
@@ -24,6 +29,8 @@ export const IMPLAUSIBLE_KINDS = [
   'flow',
   'power',
   'ambient_temperature',
+  'pressure',
+  'pressure_drop',
 ] as const;
 export type ImplausibleKind = (typeof IMPLAUSIBLE_KINDS)[number];
 
@@ -42,9 +49,17 @@ export function plausibleRanges(unit: UnitDefinition): readonly (Range | null)[]
     if (role.kind === 'flow') return [-flow, flow];
     if (role.kind === 'power') return [-power, power];
     if (role.kind === 'ambient_temperature') return AMBIENT_K;
-    if (role.kind !== 'gas_temperature') return null;
+    if (!('store' in role) || role.kind === 'thermocouple') return null;
     const store = unit.stores.find((s) => s.id === role.store);
     if (store === undefined) return null;
+    const { pressure_Pa } = store.bed;
+    if (role.kind === 'pressure') return [PRESSURE_LEAST_PA, PRESSURE_MOST * pressure_Pa];
+    if (role.kind === 'pressure_drop') {
+      const allowed = unit.limits.pressure_drop_max_Pa;
+      const most = allowed === null ? pressure_Pa : Math.min(pressure_Pa, DROP_MOST * allowed);
+      return [-most, most];
+    }
+    if (role.kind !== 'gas_temperature') return null;
     const { reference_hot_K: hot, reference_cold_K: cold } = store;
     const margin = Math.max(GAS_LEAST_MARGIN_K, hot - cold);
     return [Math.max(LEAST_GAS_K, cold - margin), hot + margin];
@@ -67,6 +82,14 @@ export function withoutImplausible(
     dropped.push(i);
   });
   return dropped.length === 0 ? { scan, dropped } : { scan: { ...scan, values }, dropped };
+}
+
+/** Whether any of these channels is one that the beds are estimated from. */
+export function touchesEstimate(unit: UnitDefinition, dropped: readonly number[]): boolean {
+  return dropped.some((i) => {
+    const kind = unit.channels[i]?.role.kind;
+    return kind !== 'pressure' && kind !== 'pressure_drop';
+  });
 }
 
 /** Channels by their index as readings that no plant produces, each with its kind. */

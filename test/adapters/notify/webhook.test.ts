@@ -210,4 +210,13 @@ describe('webhook', () => {
     history.events.add(event(1));
     await expect.poll(() => said[0], { timeout: 5000 }).toContain('ECONNREFUSED');
   });
+
+  it('says that nobody speaks TLS there, not which line of OpenSSL has failed', async () => {
+    const history = historyIn(folder());
+    const { url } = await receiverThat(() => 200);
+    const { said } = begin(history, { url: url.replace('http:', 'https:') });
+    history.events.add(event(1));
+    await expect.poll(() => said[0], { timeout: 5000 }).toContain('it answers without TLS');
+    expect(said[0]).not.toContain('\n');
+  });
 });
