@@ -7,7 +7,7 @@ import { escapeText as text } from './escape.js';
 
 /** Rows beyond this are left out of the sheet, and said so; JSON and CSV have all. */
 const MOST_RUNS = 120;
-const MOST_EVENTS = 200;
+const MOST_EVENTS = 80;
 
 interface Column {
   readonly head: string;
@@ -166,19 +166,49 @@ export function eventTable({ events, alarms }: ReportData): string {
             : 'None chattered.'
         }</p>`;
   if (events.length === 0) return `${figures}<p class="empty">None in this span.</p>`;
-  const shown = events.slice(-MOST_EVENTS);
-  const rows = shown.map((event) => [
-    minuteOf(event.time),
-    event.class === 'alarm' ? 'alarm' : 'alert',
-    event.transition,
-    text(event.message),
+  const all = grouped(events);
+  const shown = all.slice(0, MOST_EVENTS);
+  const rows = shown.map(({ last, count, first, until }) => [
+    last.class,
+    String(count),
+    minuteOf(first),
+    until === null ? '<b>stands</b>' : minuteOf(until),
+    text(last.message),
   ]);
-  const left = events.length - shown.length;
-  return `${figures}${table([t('time'), t(''), t(''), t('what')], rows)}${
-    left > 0
-      ? `<p class="soft">${left} earlier ones are left out here; JSON and CSV have all.</p>`
-      : ''
+  const heads = [t(''), n('raised'), t('first'), t('returned'), t('what it said last')];
+  const left = all.length - shown.length;
+  return `${figures}${table(heads, rows)}${
+    left > 0 ? `<p class="soft">${left} more are left out here; JSON and CSV have all.</p>` : ''
   }`;
+}
+
+interface Told {
+  readonly first: string;
+  count: number;
+  /** When it returned last; null while it stands. */
+  until: string | null;
+  last: ReportData['events'][number];
+}
+
+/** One entry per alarm or alert: what stands first, then what came most often. */
+function grouped(events: ReportData['events']): Told[] {
+  const found = new Map<string, Told>();
+  for (const event of events) {
+    const known = found.get(event.id);
+    const raised = event.transition === 'raised';
+    if (known === undefined) {
+      const until = raised ? null : event.time;
+      found.set(event.id, { first: event.time, count: raised ? 1 : 0, until, last: event });
+      continue;
+    }
+    known.until = raised ? null : event.time;
+    if (!raised) continue;
+    known.count++;
+    known.last = event;
+  }
+  const rank = ({ until, last }: Told) =>
+    (until === null ? 0 : 2) + (last.class === 'alarm' ? 0 : 1);
+  return [...found.values()].sort((x, y) => rank(x) - rank(y) || y.count - x.count);
 }
 
 function number(value: number | null, digits: number): string {

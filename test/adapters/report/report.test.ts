@@ -49,6 +49,36 @@ describe('the sheet', () => {
   });
 });
 
+describe('alarms and alerts in the sheet', () => {
+  const event = (id: string, hour: number, transition: 'raised' | 'returned', alarm = false) =>
+    ({
+      ...{ id, kind: 'k', subject: 's', transition, class: alarm ? 'alarm' : 'alert' },
+      ...{ message: `${id} ${transition} at ${hour}`, value: null },
+      time: new Date(FROM + hour * 3_600_000).toISOString(),
+    }) as unknown as WatchEvent;
+
+  it('are one row each, what stands before what has returned, with what was said last', () => {
+    const often = [1, 2, 3].flatMap((h) => [
+      event('often', h, 'raised'),
+      event('often', h + 0.5, 'returned'),
+    ]);
+    const html = reportHtml(
+      report({
+        events: [...often, event('alarm', 4, 'raised', true), event('early', 5, 'returned')],
+      }),
+    );
+    const part = html.slice(html.indexOf('<h2>Alarms and alerts</h2>'));
+    const rows = [...part.matchAll(/<tr>(<td.*?)<\/tr>/g)].map(([, row]) => row!);
+    expect(rows).toHaveLength(3);
+    expect(rows[0]).toContain('alarm raised at 4');
+    expect(rows[0]).toContain('stands');
+    expect(rows[1]).toContain('often raised at 3');
+    expect(rows[1]).toContain('<td class="n">3</td>');
+    expect(rows[1]).toContain('01-01 03:30');
+    expect(rows[2]).toContain('<td class="n">0</td>');
+  });
+});
+
 describe('a plot', () => {
   const frame = {
     title: 'T',
