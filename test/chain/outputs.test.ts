@@ -246,9 +246,24 @@ describe.skipIf(!mosquitto)('a running daemon', () => {
       ['/api/stream', '/api/stream?profile=nowhere', 400],
     ] as const;
 
+    it('makes a report in each of its forms', async () => {
+      const path = '/api/units/vellmoor/report';
+      const html = await get(path);
+      expect([html.status, html.type]).toEqual([200, 'text/html']);
+      expect(String(html.body)).toContain('<h2>Findings</h2>');
+      const json = await get(`${path}?format=json`);
+      expect(json.body).toMatchObject({ unit: 'vellmoor', findings: expect.any(Array) });
+      const csv = await get(`${path}?format=csv&table=indicators`);
+      expect(String(csv.body)).toMatch(/^indicator,subject,state/);
+    });
+
     it('describes every answer to the last key', async () => {
       const rest = operations(document).filter(([path, way]) => way === 'get' && !(path in ASKED));
-      expect(rest.map(([path]) => path)).toEqual(['/api/stream']);
+      // No JSON: asked below, and read as a stream elsewhere.
+      expect(rest.map(([path]) => path).sort()).toEqual([
+        '/api/stream',
+        '/api/units/{unit}/report',
+      ]);
       for (const [path, queries] of Object.entries(ASKED)) {
         const operation = document.paths[path]!.get!;
         for (const query of queries) {

@@ -89,7 +89,10 @@ describe('alarms of a daemon that is killed', () => {
     expect(list.stdout).toMatch(/to do within 30 min: Prepare the change-over/);
     expect(list.stdout).toContain(`shelved: ${idOf('gas_temperature_off')}, stands, by mara until`);
     expect(JSON.parse(back.stdout)).toMatchObject({ state: 'unacknowledged', who: 'ole' });
-    expect([wrong.code, wrong.stderr]).toEqual([2, expect.stringContaining('at most 8')]);
+    expect([wrong.code, wrong.stderr]).toEqual([
+      2,
+      expect.stringContaining('from 1/60 (a minute) to 8'),
+    ]);
     expect(await ask(second.page, '/figures')).toMatchObject({ held_back: { shelved: 1 } });
     expect(await second.daemon.end('SIGTERM')).toBe(0);
   }, 240_000);

@@ -47,7 +47,7 @@ export function indicatorTable({ indicators }: ReportData): string {
     n('limit'),
     n('decided'),
   ];
-  return `${table(heads, rows)}<p class="soft">Decided: how far the sequential test has come; 100 % is a decision. A healthy indicator is called degraded once in years.</p>`;
+  return `${table(heads, rows)}<p class="soft">Decided: how far the sequential test has come; 100 % is a decision. A healthy indicator is called degraded at most once in the configured in-control time, in the mean; those of a unit add up (the facts of the configuration tell it).</p>`;
 }
 
 function stateWords({ state, reason }: IndicatorView): string {

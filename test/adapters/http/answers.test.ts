@@ -382,6 +382,7 @@ describe('the good answers, each held against the schema that documents it', () 
       '/api/units/{unit}/offers/history/{no}',
       '/api/units/{unit}/offers/report',
       '/api/units/{unit}/profile',
+      '/api/units/{unit}/report',
       '/api/units/{unit}/schedule',
       '/api/units/{unit}/sensors',
       '/api/units/{unit}/watch',
