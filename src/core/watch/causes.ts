@@ -1,5 +1,5 @@
 import { CAUSE_KINDS, CAUSES, type CauseKind } from './causeTable.js';
-import type { IndicatorKind, IndicatorView } from './indicator.js';
+import { type IndicatorKind, type IndicatorView, UNIT_INDICATORS } from './indicator.js';
 import { sideOf } from './side.js';
 
 export { CAUSE_KINDS, type CauseKind } from './causeTable.js';
@@ -51,18 +51,21 @@ const LEAST = 0.05;
 export function causesOf(views: readonly IndicatorView[]): CauseView[] {
   const degraded = views.filter(({ state }) => state === 'degraded');
   if (degraded.length === 0) return [];
-  const unitKinds = new Set<IndicatorKind>(['gas_inventory', 'store_mismatch', 'energy_lost']);
   const stores = [
-    ...new Set(views.filter(({ kind }) => !unitKinds.has(kind)).map((v) => storeOf(v))),
+    ...new Set(views.filter(({ kind }) => !UNIT_INDICATORS.has(kind)).map((v) => storeOf(v))),
   ];
   const hit = stores.filter((store) =>
-    degraded.some((v) => !unitKinds.has(v.kind) && storeOf(v) === store),
+    degraded.some((v) => !UNIT_INDICATORS.has(v.kind) && storeOf(v) === store),
   );
-  const unit = views.find(({ kind }) => unitKinds.has(kind))?.subject ?? '';
+  const unit = views.find(({ kind }) => UNIT_INDICATORS.has(kind))?.subject ?? '';
   const told: CauseView[] = [];
   for (const subject of hit.length > 0 ? hit : [stores[0] ?? unit]) {
-    const here = strongest(views.filter((v) => unitKinds.has(v.kind) || storeOf(v) === subject));
-    const there = strongest(views.filter((v) => !unitKinds.has(v.kind) && storeOf(v) !== subject));
+    const here = strongest(
+      views.filter((v) => UNIT_INDICATORS.has(v.kind) || storeOf(v) === subject),
+    );
+    const there = strongest(
+      views.filter((v) => !UNIT_INDICATORS.has(v.kind) && storeOf(v) !== subject),
+    );
     for (const found of explain(here, there)) {
       const ofUnit = CAUSES[found.cause].of === 'unit';
       const known = told.findIndex((t) => ofUnit && t.cause === found.cause);

@@ -1,7 +1,7 @@
 import type { CauseView } from './causes.js';
 import { CAUSES } from './causeTable.js';
 import type { EventKind } from './event.js';
-import type { IndicatorKind, IndicatorView } from './indicator.js';
+import { type IndicatorKind, type IndicatorView, UNIT_INDICATORS } from './indicator.js';
 import { INDICATOR_EVENTS } from './kinds.js';
 
 /** From this probability on a cause explains what follows from it. */
@@ -14,15 +14,9 @@ export const MAY_FOLLOW: ReadonlySet<IndicatorKind> = new Set(
   Object.values(CAUSES).flatMap(({ follows = [] }) => follows),
 );
 
-const UNIT_KINDS: ReadonlySet<IndicatorKind> = new Set([
-  'gas_inventory',
-  'store_mismatch',
-  'energy_lost',
-]);
-
 /** Whether an indicator may speak of a cause: of the same store, or either of the unit. */
 function concerns({ kind, subject }: IndicatorView, { cause, subject: of }: CauseView): boolean {
-  return CAUSES[cause].of === 'unit' || UNIT_KINDS.has(kind) || subject.split('/')[0] === of;
+  return CAUSES[cause].of === 'unit' || UNIT_INDICATORS.has(kind) || subject.split('/')[0] === of;
 }
 
 /** Whether a degraded indicator is what tells of a cause, no mere consequence of it. */

@@ -24,6 +24,13 @@ export const INDICATOR_KINDS = [
 ] as const;
 export type IndicatorKind = (typeof INDICATOR_KINDS)[number];
 
+/** Those that speak of the unit as a whole, no store of it. */
+export const UNIT_INDICATORS: ReadonlySet<IndicatorKind> = new Set([
+  'gas_inventory',
+  'store_mismatch',
+  'energy_lost',
+]);
+
 /** Why an indicator has no decision now. */
 export const INDICATOR_REASONS = [
   /** No channel, or no string, from which it could be told. */
