@@ -36,7 +36,7 @@ const RULES: readonly Rule[] = [
   },
   {
     of: /^src\/adapters\/page\//,
-    may: [/^uplot$/, /^src\/adapters\/page\//],
+    may: [/^uplot$/, /^preact(\/|$)/, /^@preact\/signals$/, /^src\/adapters\/page\//],
     mayTypes: [core, /^src\/adapters\/http\//],
   },
   adapter('mqtt', /^mqtt$/, /^aedes$/),

@@ -5,6 +5,7 @@ import { defineConfig } from 'vite';
 export default defineConfig({
   root: import.meta.dirname,
   base: './',
+  oxc: { jsx: { runtime: 'automatic', importSource: 'preact' } },
   build: {
     outDir: resolve(import.meta.dirname, '../../../dist/page'),
     emptyOutDir: true,

@@ -6,10 +6,12 @@ import type { Frame } from './frame.js';
 
 export type Front = StoreState['fronts'][number];
 
-/** 1 where the front moves down the drawing now, -1 up, 0 where it does not move. */
-export function travelOf(frame: Frame, mode: Mode | null): -1 | 0 | 1 {
+/**
+ * 1 where the front moves down the drawing now, -1 up, 0 where it does not move.
+ * @param along 1 where positions grow downwards, -1 upwards
+ */
+export function travelOf(along: -1 | 1, mode: Mode | null): -1 | 0 | 1 {
   if (mode === null || mode === 'stand') return 0;
-  const along = Math.sign(frame.y(1) - frame.y(0)) as -1 | 1;
   return mode === 'charge' ? along : (-along as -1 | 1);
 }
 
@@ -48,7 +50,7 @@ export function frontMarks(
   }
   group.append(s('path', { class: 'line', d: `M${from},${y} H${right}` }));
 
-  const travel = travelOf(frame, mode);
+  const travel = travelOf(frame.y(1) > frame.y(0) ? 1 : -1, mode);
   if (travel !== 0) {
     const x = frame.bed.right + 8;
     group.append(s('path', { class: 'head', d: `M${x - 6},${y} h12 l-6,${travel * 10} Z` }));

@@ -91,7 +91,7 @@ export function sensorMark(x: number, y: number, reading: Reading, size: number)
 export function tubeFronts(
   frame: Frame,
   rings: readonly Ring[],
-  state: StoreState | null,
+  state: Pick<StoreState, 'strings'> | null,
 ): SVGElement {
   const group = s('g', { class: 'tube-fronts' });
   for (const ring of rings) {

@@ -2,7 +2,6 @@ import type {
   AlarmLists,
   AskedHours,
   History,
-  StreamState,
   UnitDefinition,
   UnitList,
   UnitState,
@@ -19,6 +18,12 @@ export class AnswerError extends Error {
   }
 }
 
+/** Any error in words. */
+export const wordsOf = (error: unknown): string =>
+  error instanceof AnswerError ? error.message : `This page has a fault: ${error}`;
+
+export type Query = Readonly<Record<string, string | number | boolean | null | undefined>>;
+
 const LIMIT_MS = 15_000;
 
 /** All questions to the server; `base` is the folder of the page, so any path prefix holds. */
@@ -32,16 +37,11 @@ export class Api {
     return url.href;
   }
 
-  units = () => this.ask<UnitList>('api/units');
-  unit = (unit: string) =>
-    this.ask<UnitState & { definition: UnitDefinition }>(`api/units/${encodeURIComponent(unit)}`);
-  profile = (unit: string) =>
-    this.ask<NonNullable<StreamState['profile']>>(`api/units/${encodeURIComponent(unit)}/profile`);
-  hours = (unit: string, power_MW: number) =>
-    this.ask<AskedHours>(
-      `api/units/${encodeURIComponent(unit)}/hours?power_MW=${power_MW}&stale=mark`,
-    );
-  alarms = () => this.ask<AlarmLists>('api/alarms');
+  units = () => this.get<UnitList>('api/units');
+  unit = (unit: string) => this.get<UnitState & { definition: UnitDefinition }>(this.path(unit));
+  alarms = () => this.get<AlarmLists>('api/alarms');
+  hours = (unit: string, power_MW: number, signal?: AbortSignal) =>
+    this.get<AskedHours>(this.path(unit, 'hours'), { power_MW, stale: 'mark' }, signal);
 
   history(
     unit: string,
@@ -49,30 +49,52 @@ export class Api {
     to: Date,
     points: number,
     series: readonly string[],
+    signal?: AbortSignal,
   ): Promise<History> {
-    const query = new URLSearchParams({
+    const query = {
       from: from.toISOString(),
       to: to.toISOString(),
-      points: String(points),
+      points,
       series: series.join(','),
-    });
-    return this.ask(`api/units/${encodeURIComponent(unit)}/history?${query}`);
+    };
+    return this.get(this.path(unit, 'history'), query, signal);
   }
 
-  async acknowledge(id: string, who: string): Promise<void> {
-    await this.ask('api/alarms/acknowledge', {
-      method: 'POST',
-      headers: { 'content-type': 'application/json' },
-      body: JSON.stringify({ id, who }),
-    });
+  /** `api/units/UNIT/...`, relative to the page. */
+  path = (unit: string, ...parts: string[]): string =>
+    ['api/units', encodeURIComponent(unit), ...parts].join('/');
+
+  /** Address of an answer, for a link; values that are null or undefined are left out. */
+  href(path: string, query: Query = {}): string {
+    const url = new URL(path, this.base);
+    for (const [name, value] of Object.entries(query)) {
+      if (value !== null && value !== undefined) url.searchParams.set(name, String(value));
+    }
+    return url.href;
   }
 
-  private async ask<T>(path: string, init: RequestInit = {}): Promise<T> {
+  /** @throws AnswerError with the server's own words */
+  get<T>(path: string, query: Query = {}, signal?: AbortSignal): Promise<T> {
+    return this.ask<T>(this.href(path, query), {}, signal);
+  }
+
+  /** @throws AnswerError with the server's own words */
+  post<T>(path: string, body: unknown, signal?: AbortSignal): Promise<T> {
+    const headers = { 'content-type': 'application/json' };
+    return this.ask<T>(
+      this.href(path),
+      { method: 'POST', headers, body: JSON.stringify(body) },
+      signal,
+    );
+  }
+
+  private async ask<T>(url: string, init: RequestInit, ended?: AbortSignal): Promise<T> {
     let answer: Response;
     try {
-      answer = await fetch(new URL(path, this.base), {
+      const limit = AbortSignal.timeout(LIMIT_MS);
+      answer = await fetch(url, {
         ...init,
-        signal: AbortSignal.timeout(LIMIT_MS),
+        signal: ended === undefined ? limit : AbortSignal.any([limit, ended]),
       });
     } catch {
       throw new AnswerError('The server does not answer.', null);

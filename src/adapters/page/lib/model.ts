@@ -1,103 +1,111 @@
+import { batch, computed, signal } from '@preact/signals';
 import type { Beat, Standing, StreamState, UnitDefinition, UnitList } from './wire.js';
 
 export type Connection = 'connecting' | 'live' | 'lost';
 
+/** What is known of a unit; a change makes another object of it. */
 export interface UnitEntry {
   readonly unit: string;
   readonly name: string;
-  definition: UnitDefinition | null;
-  state: StreamState | null;
+  readonly definition: UnitDefinition | null;
+  readonly state: StreamState | null;
   /** Age of the newest reading as last told [s], and when that was [ms of this page's clock]. */
-  age_s: number | null;
-  aged_ms: number;
-  stale: boolean;
+  readonly age_s: number | null;
+  readonly aged_ms: number;
+  readonly stale: boolean;
 }
 
-/** Everything the page knows. Its size is bounded by the number of units and standing events. */
+/**
+ * Everything that all sheets share, as signals: who reads one is drawn again when it changes. Its size
+ * is bounded by the number of units and of standing events.
+ */
 export class PageModel {
-  site = '';
-  version = '';
-  connection: Connection = 'connecting';
+  readonly site = signal('');
+  readonly version = signal('');
+  readonly connection = signal<Connection>('connecting');
   /** Wall clock of the last change of `connection` to `lost`. */
-  lostSince_ms = 0;
-  units: UnitEntry[] = [];
-  selected: string | null = null;
-  standing: Standing[] = [];
+  readonly lostSince_ms = signal(0);
+  readonly units = signal<readonly UnitEntry[]>([]);
+  readonly selected = signal<string | null>(null);
+  readonly standing = signal<readonly Standing[]>([]);
   /** Shelved, suppressed by design or out of service. */
-  heldBack: Standing[] = [];
-  private readonly listeners: (() => void)[] = [];
-  private drawing = false;
-
-  get unit(): UnitEntry | null {
-    return this.units.find((entry) => entry.unit === this.selected) ?? null;
-  }
-
-  /** Called once per frame at most, however much changes in between. */
-  onChange(listener: () => void): void {
-    this.listeners.push(listener);
-  }
-
-  changed(): void {
-    if (this.drawing) return;
-    this.drawing = true;
-    requestAnimationFrame(() => {
-      this.drawing = false;
-      for (const listener of this.listeners) listener();
-    });
-  }
+  readonly heldBack = signal<readonly Standing[]>([]);
+  /** Goes on once a second, for ages that grow by themselves [ms of performance.now()]. */
+  readonly tick_ms = signal(performance.now());
+  /** Counts what was told about alarms: lists that are asked for are asked for again. */
+  readonly alarmNews = signal(0);
+  /** The chosen unit. */
+  readonly unit = computed(
+    () => this.units.value.find((entry) => entry.unit === this.selected.value) ?? null,
+  );
 
   takeUnits(list: UnitList): void {
-    this.site = list.site;
-    this.version = list.version;
-    this.units = list.units.map((summary) => {
-      const before = this.units.find((entry) => entry.unit === summary.unit);
-      const { unit, name, age_s, stale } = summary;
-      return {
-        unit,
-        name,
-        definition: before?.definition ?? null,
-        state: before?.state ?? null,
-        age_s,
-        aged_ms: performance.now(),
-        stale,
-      };
+    batch(() => {
+      this.site.value = list.site;
+      this.version.value = list.version;
+      const before = this.units.value;
+      this.units.value = list.units.map((summary) => {
+        const known = before.find((entry) => entry.unit === summary.unit);
+        const { unit, name, age_s, stale } = summary;
+        return {
+          unit,
+          name,
+          definition: known?.definition ?? null,
+          state: known?.state ?? null,
+          age_s,
+          aged_ms: performance.now(),
+          stale,
+        };
+      });
+      if (this.unit.value === null) this.selected.value = this.units.value[0]?.unit ?? null;
     });
-    if (this.unit === null) this.selected = this.units[0]?.unit ?? null;
-    this.changed();
+  }
+
+  takeDefinition(unit: string, definition: UnitDefinition | null): void {
+    this.change(unit, { definition });
   }
 
   takeState(state: StreamState): void {
-    const entry = this.units.find((candidate) => candidate.unit === state.unit);
-    if (entry === undefined) return;
+    const before = this.units.value.find((entry) => entry.unit === state.unit);
+    if (before === undefined) return;
     // A state without profile, as another unit's, keeps the profile that is shown.
-    entry.state = { ...state, profile: state.profile ?? entry.state?.profile ?? null };
-    this.takeAge(entry, state.age_s, state.stale);
-    this.changed();
+    const profile = state.profile ?? before.state?.profile ?? null;
+    this.change(state.unit, {
+      state: { ...state, profile },
+      age_s: state.age_s,
+      aged_ms: performance.now(),
+      stale: state.stale,
+    });
   }
 
   takeBeat(beat: Beat): void {
-    for (const { unit, age_s, stale } of beat.units) {
-      const entry = this.units.find((candidate) => candidate.unit === unit);
-      if (entry !== undefined) this.takeAge(entry, age_s, stale);
-    }
-    this.changed();
+    batch(() => {
+      for (const { unit, age_s, stale } of beat.units) {
+        this.change(unit, { age_s, aged_ms: performance.now(), stale });
+      }
+    });
   }
 
   setConnection(connection: Connection): void {
-    if (connection === this.connection) return;
-    if (connection === 'lost') this.lostSince_ms = Date.now();
-    this.connection = connection;
-    this.changed();
+    if (connection === this.connection.value) return;
+    batch(() => {
+      if (connection === 'lost') this.lostSince_ms.value = Date.now();
+      this.connection.value = connection;
+    });
   }
 
-  private takeAge(entry: UnitEntry, age_s: number | null, stale: boolean): void {
-    entry.age_s = age_s;
-    entry.aged_ms = performance.now();
-    entry.stale = stale;
+  private change(unit: string, news: Partial<UnitEntry>): void {
+    const before = this.units.value;
+    if (!before.some((entry) => entry.unit === unit)) return;
+    this.units.value = before.map((entry) => (entry.unit === unit ? { ...entry, ...news } : entry));
   }
 }
 
-/** Age of the newest reading now: it goes on growing while nothing comes. */
-export function ageNow(entry: UnitEntry): number | null {
-  return entry.age_s === null ? null : entry.age_s + (performance.now() - entry.aged_ms) / 1000;
+/**
+ * Age of the newest reading now: it goes on growing while nothing comes.
+ * @param tick_ms of the model; read it, so that the age is drawn every second
+ */
+export function ageNow(entry: UnitEntry, tick_ms: number): number | null {
+  if (entry.age_s === null) return null;
+  return entry.age_s + Math.max(0, Math.max(tick_ms, performance.now()) - entry.aged_ms) / 1000;
 }

@@ -1,0 +1,76 @@
+import { useEffect, useRef } from 'preact/hooks';
+import { zoneText } from '../lib/format.js';
+import { model } from '../lib/page.js';
+import { route, type Sheet } from '../lib/route.js';
+import { bannerText, isOld, TRUST_WORDS, trustOf } from '../lib/trust.js';
+import { MaintenanceSheet } from '../maintenance/MaintenanceSheet.js';
+import { OperatorSheet } from '../operator/OperatorSheet.js';
+import { SiteSheet } from '../site/SiteSheet.js';
+import { TraderSheet } from '../trader/TraderSheet.js';
+import { Head } from './Head.js';
+
+const SHEET_OF: Readonly<Record<Sheet, () => preact.JSX.Element>> = {
+  now: OperatorSheet,
+  rock: MaintenanceSheet,
+  offer: TraderSheet,
+  site: SiteSheet,
+};
+
+/** The page: head and foot are the same on every sheet, so that old data never pass unnoticed. */
+export function App() {
+  const { sheet, part } = route.value;
+  const main = useRef<HTMLElement>(null);
+  const first = useRef(true);
+  const entry = model.unit.value;
+  const trust = trustOf(model.connection.value, entry);
+  const old = isOld(trust);
+
+  // A sheet that was changed to is read from its head, a part that was meant from there.
+  useEffect(() => {
+    const wanted = part === '' ? null : document.getElementById(part.split('/')[0] ?? '');
+    if (wanted !== null) {
+      wanted.scrollIntoView();
+      wanted.focus({ preventScroll: true });
+    } else if (!first.current) {
+      window.scrollTo(0, 0);
+      main.current?.focus({ preventScroll: true });
+    }
+    first.current = false;
+  }, [sheet, part]);
+
+  const open = model.standing.value.filter((event) => event.state === 'unacknowledged').length;
+  const title = `${open > 0 ? `(${open}) ` : ''}${old ? `${TRUST_WORDS[trust]} · ` : ''}${entry?.name ?? model.site.value} · rockhour`;
+  useEffect(() => {
+    document.title = title;
+  }, [title]);
+
+  const Shown = SHEET_OF[sheet];
+  return (
+    <>
+      <button type="button" class="skip" onClick={() => main.current?.focus()}>
+        Skip to the figures
+      </button>
+      <Head />
+      <div id="banner" role="alert" data-trust={trust}>
+        {bannerText(trust, entry, model.lostSince_ms.value)}
+      </div>
+      <main id="main" ref={main} tabIndex={-1} data-sheet={sheet} data-old={old ? '' : undefined}>
+        <Shown />
+      </main>
+      <Foot />
+    </>
+  );
+}
+
+function Foot() {
+  return (
+    <footer>
+      <p>
+        <strong>rockhour advises and trips nothing.</strong> It writes nothing to the control
+        system. Hazards of pressure, heat, cold and oxygen deficiency are matters for the plant’s
+        protection systems, local codes and licensed people.
+      </p>
+      <p id="about">{`rockhour ${model.version.value} · times in ${zoneText(new Date())}`}</p>
+    </footer>
+  );
+}

@@ -1,0 +1,82 @@
+import { Api } from './api.js';
+import { LiveConnection } from './live.js';
+import { PageModel } from './model.js';
+import { putUnitInAddress, unitOfAddress } from './route.js';
+
+const ALARMS_EVERY_MS = 30_000;
+const RETRY_MS = 2_000;
+
+/** The one model, the one way to ask and the one stream that all sheets share. */
+export const model = new PageModel();
+export const api = new Api();
+
+/** The list of what stands is always asked of the server whole, never pieced together here. */
+export async function reloadAlarms(): Promise<void> {
+  try {
+    const { standing, suppressed } = await api.alarms();
+    model.standing.value = standing;
+    model.heldBack.value = suppressed;
+    model.alarmNews.value += 1;
+  } catch {
+    // The stream says so if the server is away; the list of before stays, marked as old.
+  }
+}
+
+async function loadDefinition(unit: string): Promise<void> {
+  const entry = model.units.value.find((candidate) => candidate.unit === unit);
+  if (entry === undefined || entry.definition !== null) return;
+  model.takeDefinition(unit, (await api.unit(unit)).definition);
+}
+
+async function loadUnits(): Promise<void> {
+  model.takeUnits(await api.units());
+  const { value: unit } = model.selected;
+  if (unit !== null) await loadDefinition(unit);
+}
+
+const live = new LiveConnection((profileOf, id) => api.streamUrl(profileOf, id), {
+  hello: (hello) => {
+    model.setConnection('live');
+    // After a restart the configuration may be another one.
+    if (hello.resume === 'gap') {
+      for (const { unit } of model.units.value) model.takeDefinition(unit, null);
+    }
+    void loadUnits().catch(() => undefined);
+    void reloadAlarms();
+  },
+  state: (state) => model.takeState(state),
+  alarms: () => void reloadAlarms(),
+  beat: (beat) => model.takeBeat(beat),
+  lost: () => model.setConnection('lost'),
+});
+
+/** Chooses the unit that all sheets show. */
+export function select(unit: string): void {
+  model.selected.value = unit;
+  putUnitInAddress(unit);
+  void loadDefinition(unit).catch(() => undefined);
+  live.follow(unit);
+}
+
+/** Asks which units there are, until the server answers; then opens the stream. */
+export async function begin(): Promise<void> {
+  try {
+    await loadUnits();
+  } catch {
+    model.setConnection('lost');
+    window.setTimeout(() => void begin(), RETRY_MS);
+    return;
+  }
+  const wanted = unitOfAddress();
+  const known = model.units.value.some((entry) => entry.unit === wanted);
+  const unit = known ? wanted : model.selected.value;
+  if (unit !== null) select(unit);
+}
+
+/** What happens by time alone: ages grow, lists of alarms are asked for again. */
+export function startTimers(): void {
+  window.setInterval(() => {
+    model.tick_ms.value = performance.now();
+  }, 1_000);
+  window.setInterval(() => void reloadAlarms(), ALARMS_EVERY_MS);
+}

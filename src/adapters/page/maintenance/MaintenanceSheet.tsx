@@ -1,0 +1,4 @@
+/** Sheet. */
+export function MaintenanceSheet() {
+  return <h1>Rock</h1>;
+}

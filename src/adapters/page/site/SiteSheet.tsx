@@ -1,0 +1,4 @@
+/** Sheet. */
+export function SiteSheet() {
+  return <h1>All units</h1>;
+}

@@ -1,0 +1,4 @@
+/** Sheet. */
+export function TraderSheet() {
+  return <h1>Offer</h1>;
+}
