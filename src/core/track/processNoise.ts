@@ -13,7 +13,12 @@ const SHAPE_PER_METRE_M = 0.02; // [m per sqrt(m)], from the ring truth's isothe
 const SHAPE_LENGTH_M = 0.3;
 const STANDING_K_PER_SQRT_H = 0.05;
 const FLOW_WALK_PER_SQRT_H = 0.01;
-const TRANSFER_WALK_PER_SQRT_H = 0.06;
+/**
+ * ln phi_h comes back to the configured factor as a first-order Gauss-Markov state of the configured
+ * sigma; with that of 0.5 it walks by 0.06 per root hour. A walk without a way back left the healthy
+ * ranges where fronts are too wide to tell of it (18 times the exchange after a month of partial cycles).
+ */
+export const TRANSFER_TIME_H = 140;
 const SHARE_WALK_PER_SQRT_H = 0.02;
 /** A leaking valve keeps what it lets through within this share of the prior over a day. */
 const LEAK_WALK_PER_SQRT_DAY = 0.3;
@@ -36,8 +41,8 @@ const ADAPT_MOST = 30;
  *   travelled, correlated over SHAPE_LENGTH: (dT/dx)^2 kappa^2 |v| dt;
  * - standing: heat between tubes, natural convection and uncertain losses, as a slow walk of each
  *   temperature that grows with its distance from ambient;
- * - slow walks of flow, transfer and gas-share factors, faster while the tube is surprised; offsets
- *   are first-order Gauss-Markov.
+ * - slow walks of the flow and gas-share factors; the transfer factor and offsets are first-order
+ *   Gauss-Markov, the transfer factor's faster while the tube is surprised.
  *
  * Scaled by dt, so a scan in parts adds the same as one in whole.
  */
@@ -84,7 +89,10 @@ export function addProcessNoise(
   }
   if (flowing) {
     walk(p, size, layout.flow, FLOW_WALK_PER_SQRT_H ** 2 * hours);
-    walk(p, size, layout.transfer, adapt * adapt * TRANSFER_WALK_PER_SQRT_H ** 2 * hours);
+    const transfer = estimator.heat_transfer_factor_sigma ** 2;
+    fade(state, size, cells, layout.transfer, Math.exp(-hours / TRANSFER_TIME_H), transfer);
+    const more = (2 * (adapt * adapt - 1) * hours) / TRANSFER_TIME_H;
+    walk(p, size, layout.transfer, more * transfer);
     walk(p, size, layout.share, SHARE_WALK_PER_SQRT_H ** 2 * hours);
   } else {
     const step = LEAK_WALK_PER_SQRT_DAY * leakSigma(model);

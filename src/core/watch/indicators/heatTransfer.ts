@@ -1,3 +1,4 @@
+import { TRANSFER_TIME_H } from '../../track/processNoise.js';
 import type { StoreModel, StoreState } from '../../track/storeTracker.js';
 import {
   type FollowRule,
@@ -38,8 +39,7 @@ interface StoreFollow {
   shown_ms: number | null;
 }
 
-/** The filter's own walk of ln phi_h, and how it grows with its surprise: see processNoise. */
-const WALK_PER_SQRT_H = 0.06;
+/** How the filter's own walk of ln phi_h grows with its surprise: see processNoise. */
 const ADAPT_FROM = 2;
 const ADAPT_MOST = 30;
 /**
@@ -65,8 +65,8 @@ export const HEAT_TRANSFER: Indicator<Record<string, StoreFollow>> = {
       const state = heldOf(states, id, startHeld);
       const store = input.state.stores[s] as StoreState;
       const moving = input.taken.conditions.flow_kg_s !== 0;
-      const walk = moving ? (state.adapt * WALK_PER_SQRT_H) ** 2 * (input.dt_s / 3600) : 0;
-      const scan = { ...scanOf(input, s), walk, dt_s: input.dt_s };
+      const own = moving ? ownMotion(model, state.adapt, input.dt_s) : { walk: 0 };
+      const scan = { ...scanOf(input, s), ...own, dt_s: input.dt_s };
       const news = ofTheBed(
         model,
         store,
@@ -145,6 +145,19 @@ function followRule(
     limits: [{ degraded: Math.log(rule.limit), back: Math.log(rule.limit + rule.deadband) }],
     decision: decisionAt(watching.in_control_d, NEWS_EVERY_S),
   };
+}
+
+/** How ln phi_h goes back and spreads by itself in a scan of flow, as the filter has it: see processNoise. */
+function ownMotion(
+  model: StoreModel,
+  adapt: number,
+  dt_s: number,
+): { walk: number; decay: number } {
+  const { estimator } = model.tubes[0] as StoreModel['tubes'][number];
+  const times = dt_s / 3600 / TRANSFER_TIME_H;
+  const decay = Math.exp(-times);
+  const more = 2 * (adapt * adapt - 1) * times;
+  return { walk: (1 - decay * decay + more) * estimator.heat_transfer_factor_sigma ** 2, decay };
 }
 
 /** ln phi_h, area mean, with the tubes' errors as one and the same. */

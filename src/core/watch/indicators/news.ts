@@ -28,6 +28,11 @@ export function startNews(): NewsState {
 export interface NewsScan {
   /** Variance that the filter itself has added to the figure in this scan. */
   readonly walk: number;
+  /**
+   * What the filter has left of the figure in this scan, as it comes back to its prior by itself; 1
+   * where it does not. Coming back is not news.
+   */
+  readonly decay?: number;
   readonly dt_s: number;
   /** Whether this scan moved a front through the bed. */
   readonly flowing: boolean;
@@ -53,13 +58,16 @@ export function newsOf(state: NewsState, now: () => Known, scan: NewsScan): Know
     Object.assign(state, startNews(), { before: scan.sound ? now() : null });
     return null;
   }
-  state.walkVariance += scan.walk;
+  const { decay = 1 } = scan;
+  const kept = { value: decay * before.value, sigma: decay * before.sigma };
+  state.before = kept;
+  state.walkVariance = decay * decay * state.walkVariance + scan.walk;
   if (!scan.flowing) return null;
   state.flow_s += scan.dt_s;
   if (state.flow_s < NEWS_EVERY_S) return null;
   const after = now();
-  const forgotten = after.sigma ** 2 > FORGOTTEN * (before.sigma ** 2 + state.walkVariance);
-  const news = forgotten ? null : newInformation(before, after, state.walkVariance);
+  const forgotten = after.sigma ** 2 > FORGOTTEN * (kept.sigma ** 2 + state.walkVariance);
+  const news = forgotten ? null : newInformation(kept, after, state.walkVariance);
   if (forgotten || news !== null) Object.assign(state, startNews(), { before: after });
   return news;
 }
