@@ -1,40 +1,26 @@
 import { Command, CommanderError } from 'commander';
-import { register as registerAlarms } from './commands/alarms.js';
-import { register as registerBalance } from './commands/balance.js';
-import { register as registerCapability } from './commands/capability.js';
-import { register as registerCheck } from './commands/check.js';
-import { register as registerCycles } from './commands/cycles.js';
-import { register as registerDemo } from './commands/demo.js';
-import { register as registerHeadroom } from './commands/headroom.js';
 import { closingHelp } from './commands/help.js';
-import { register as registerHours } from './commands/hours.js';
-import { register as registerOffers } from './commands/offers.js';
-import { register as registerReplay } from './commands/replay.js';
-import { register as registerReport } from './commands/report.js';
-import { packageVersion, register as registerRun } from './commands/run.js';
-import { register as registerSchedule } from './commands/schedule.js';
-import { register as registerSensors } from './commands/sensors.js';
-import { register as registerTune } from './commands/tune.js';
+import { packageVersion } from './commands/version.js';
 import { EXIT_CODES, exitCodeOf, explain, RockhourError } from './errors.js';
 
-/** In the order of the help. */
-const COMMANDS = [
-  registerRun,
-  registerDemo,
-  registerReplay,
-  registerHours,
-  registerHeadroom,
-  registerOffers,
-  registerSchedule,
-  registerCapability,
-  registerBalance,
-  registerCycles,
-  registerReport,
-  registerAlarms,
-  registerTune,
-  registerSensors,
-  registerCheck,
-];
+/** In the order of the help; each is loaded only where it, or all, may be meant. */
+const COMMANDS: Readonly<Record<string, () => Promise<{ register(program: Command): void }>>> = {
+  run: () => import('./commands/run.js'),
+  demo: () => import('./commands/demo.js'),
+  replay: () => import('./commands/replay.js'),
+  hours: () => import('./commands/hours.js'),
+  headroom: () => import('./commands/headroom.js'),
+  offers: () => import('./commands/offers.js'),
+  schedule: () => import('./commands/schedule.js'),
+  capability: () => import('./commands/capability.js'),
+  balance: () => import('./commands/balance.js'),
+  cycles: () => import('./commands/cycles.js'),
+  report: () => import('./commands/report.js'),
+  alarms: () => import('./commands/alarms.js'),
+  tune: () => import('./commands/tune.js'),
+  sensors: () => import('./commands/sensors.js'),
+  check: () => import('./commands/check.js'),
+};
 
 function fail(thrown: unknown): void {
   process.stderr.write(`${explain(thrown)}\n`);
@@ -49,7 +35,7 @@ function commandLineFailed({ code, exitCode, message }: CommanderError): void {
   else fail(new RockhourError('USAGE', message.replace(/^error: /, '').replace('\n', ' ')));
 }
 
-function createProgram(): Command {
+async function createProgram(asked: string | undefined): Promise<Command> {
   const program = new Command('rockhour')
     .description('Front positions, stored energy and remaining hours of packed-bed thermal stores')
     .version(packageVersion())
@@ -58,7 +44,11 @@ function createProgram(): Command {
     // What is wrong with a command line is said by `fail`, as everything that is wrong.
     .configureOutput({ outputError: () => undefined })
     .exitOverride();
-  for (const register of COMMANDS) register(program);
+  const one = Object.entries(COMMANDS).filter(([name]) => name === asked);
+  // Help, and what is advised instead of a command that there is not, need all of them.
+  for (const [, load] of one.length > 0 ? one : Object.entries(COMMANDS)) {
+    (await load()).register(program);
+  }
   return program;
 }
 
@@ -79,7 +69,7 @@ for (const event of ['uncaughtException', 'unhandledRejection'] as const) {
 }
 
 try {
-  await createProgram().parseAsync();
+  await (await createProgram(process.argv[2])).parseAsync();
 } catch (thrown) {
   if (thrown instanceof CommanderError) commandLineFailed(thrown);
   else fail(thrown);

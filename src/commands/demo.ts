@@ -2,13 +2,14 @@ import { fileURLToPath } from 'node:url';
 import type { Command } from 'commander';
 import { loadSite } from '../config/load.js';
 import type { SiteConfig } from '../config/site.js';
-import { type DemoCheck, type DemoOptions, demoSite, runDemo, runDemoCheck } from '../daemon.js';
+import type { DemoCheck, DemoOptions } from '../daemon.js';
 import { RockhourError } from '../errors.js';
 import { createLog } from '../log.js';
 import { Interrupt, interrupted } from './interrupt.js';
 import { startProgress } from './progress.js';
-import { askedToStop, logLevel, packageVersion, readyLine } from './run.js';
+import { askedToStop, logLevel, readyLine } from './run.js';
 import { table } from './table.js';
+import { packageVersion } from './version.js';
 
 interface DemoCommandOptions {
   readonly config: string;
@@ -47,11 +48,12 @@ async function demo(options: DemoCommandOptions): Promise<void> {
     throw new RockhourError('USAGE', '--json goes with --check-hours only');
   }
   const speed = numberIn('--speed', options.speed, 1, 2000);
-  const { site, remove } = await demoSite(loadSite(options.config), {
+  const configured = loadSite(options.config);
+  const places = {
     http_port: port('--http-port', options.httpPort),
     mqtt_port: port('--mqtt-port', options.mqttPort),
     keep: options.keep === true,
-  });
+  };
   const common: DemoOptions = {
     log: createLog({ level: logLevel(options.logLevel) }),
     version: packageVersion(),
@@ -60,6 +62,9 @@ async function demo(options: DemoCommandOptions): Promise<void> {
     seed: numberIn('--seed', options.seed, 0, 2 ** 31),
     incidents: options.incidents,
   };
+  // Servers and clients take half a second to load, which a refusal above need not wait for.
+  const { demoSite } = await import('../daemon.js');
+  const { site, remove } = await demoSite(configured, places);
   try {
     if (options.checkHours === undefined) await live(site, common, options);
     else await check(site, common, options);
@@ -75,6 +80,7 @@ async function live(
   options: DemoCommandOptions,
 ): Promise<void> {
   const asked = askedToStop();
+  const { runDemo } = await import('../daemon.js');
   const running = await runDemo(site, common);
   process.stdout.write(
     [
@@ -100,6 +106,7 @@ async function check(
   const quiet = { ...site, mqtt: { ...site.mqtt, embedded_port: 0 } };
   let checks: DemoCheck[];
   let reached = 0;
+  const { runDemoCheck } = await import('../daemon.js');
   const interrupt = new Interrupt();
   interrupt.start();
   try {

@@ -10,9 +10,9 @@ import { loadSite } from '../config/load.js';
 import { findingsOf } from '../core/report/findings.js';
 import type { ReportData } from '../core/report/reportData.js';
 import { fileReasonOf, RockhourError } from '../errors.js';
-import { packageVersion } from './run.js';
 import { chooseUnit } from './site.js';
 import { parsePoint_ms } from './values.js';
+import { packageVersion } from './version.js';
 
 interface ReportOptions {
   readonly config: string;

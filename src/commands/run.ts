@@ -1,10 +1,10 @@
-import { readFileSync } from 'node:fs';
 import type { Command } from 'commander';
 import { loadSite } from '../config/load.js';
 import type { SiteConfig } from '../config/site.js';
-import { createDaemon, type Daemon, type DaemonPlaces } from '../daemon.js';
+import type { Daemon, DaemonPlaces } from '../daemon.js';
 import { RockhourError } from '../errors.js';
 import { createLog, LOG_LEVELS, type LogLevel } from '../log.js';
+import { packageVersion } from './version.js';
 
 interface RunOptions {
   readonly config: string;
@@ -13,12 +13,6 @@ interface RunOptions {
 
 /** A stop takes no longer than this [ms]; what hangs is left behind. */
 const STOP_MS = 5000;
-
-export function packageVersion(): string {
-  // Beside both src and dist.
-  const text = readFileSync(new URL('../../package.json', import.meta.url), 'utf8');
-  return (JSON.parse(text) as { version: string }).version;
-}
 
 export function logLevel(text: string): LogLevel {
   const level = LOG_LEVELS.find((one) => one === text);
@@ -69,6 +63,8 @@ export async function stopInTime(daemon: Daemon): Promise<void> {
 async function run(options: RunOptions): Promise<void> {
   const site = loadSite(options.config);
   const log = createLog({ level: logLevel(options.logLevel) });
+  // Servers and clients take half a second to load, which a refusal above need not wait for.
+  const { createDaemon } = await import('../daemon.js');
   const daemon = createDaemon(site, {
     log,
     version: packageVersion(),
