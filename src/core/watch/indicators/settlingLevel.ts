@@ -35,6 +35,8 @@ export interface Level {
   readonly tops: Top[];
   /** Test of all topmost thermocouples together: a bed mostly sinks as a whole. */
   readonly whole: Followed;
+  /** Sum of 1/sigma^2 over the values of that test. */
+  information: number;
   readonly entry: Entry;
 }
 
@@ -71,10 +73,13 @@ export function startLevel(model: StoreModel): Level {
         }),
       ),
   );
-  return { ...noRest(), tops, whole: startFollowed(), entry: startEntry(tops) };
+  return {
+    ...noRest(),
+    ...{ tops, whole: startFollowed(), information: 0, entry: startEntry(tops) },
+  };
 }
 
-const noRest = (): Omit<Level, 'tops' | 'whole' | 'entry'> => ({
+const noRest = (): Omit<Level, 'tops' | 'whole' | 'information' | 'entry'> => ({
   stood_s: 0,
   mean_s: 0,
   scans: 0,
