@@ -16,7 +16,7 @@ export function listText({
     [
       `${entry.class}, ${entry.priority}, ${words(entry.state)}${by(entry)}: ${entry.id}`,
       `  ${entry.time}  ${entry.message}`,
-      `  to do within ${hours(entry.respond_within_h)}: ${entry.action}`,
+      `  to do ${until(entry)}: ${entry.action}`,
       `  else: ${entry.consequence}`,
     ].join('\n'),
   );
@@ -25,6 +25,10 @@ export function listText({
     ...(shown.length === 0 ? ['Nothing stands.'] : shown),
     ...(held.length === 0 ? [] : ['', `Held back (${held.length}):`, ...held]),
   ].join('\n');
+}
+
+function until({ act_by, respond_within_h }: AlarmEntry): string {
+  return act_by === undefined ? `within ${hours(respond_within_h)}` : `until ${act_by}`;
 }
 
 function by({ acknowledged_by }: AlarmEntry): string {

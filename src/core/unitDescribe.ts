@@ -1,5 +1,6 @@
 import type { UnitDefinition } from './definitions.js';
-import { hoursOf, stateOfCharge } from './dispatch/unitHours.js';
+import { centralHours, computeHours } from './dispatch/hours.js';
+import { hoursInput, hoursOf, stateOfCharge } from './dispatch/unitHours.js';
 import type { Estimate, ProfileView, Quality, StoreEstimate } from './estimate.js';
 import { countThermocouples, type ScanCounts } from './scanCounts.js';
 import { type GasDoubt, gasDoubts } from './track/gasDoubts.js';
@@ -15,6 +16,8 @@ import { causesOf } from './watch/causes.js';
 import { cycleScanOf } from './watch/cycle/unitScan.js';
 import { cycleRules, startCycleLog, stepCycleLog } from './watch/cycleLog.js';
 import { stepIndicators } from './watch/indicators.js';
+import { isOutletNear, OUTLET_ALARM } from './watch/outletAlarm.js';
+import { stepRunEnd } from './watch/runEnd.js';
 import type { SpreadRatio } from './watch/spreadRatio.js';
 import { stepWatch } from './watch/watch.js';
 
@@ -79,6 +82,7 @@ export function describe(model: UnitModel, state: UnitState, taken: Taken, ask: 
     dt_s: taken.dt_s,
   });
   const causes = causesOf(indicators);
+  followRun(model, state, taken, estimate);
   const events = stepWatch(unit, state.watch, {
     time_ms: scan.time_ms,
     mode: taken.conditions.mode,
@@ -86,6 +90,7 @@ export function describe(model: UnitModel, state: UnitState, taken: Taken, ask: 
     readingsSeen: taken.readings,
     drops_Pa: dropsOf(unit, scan.values),
     gas,
+    run: state.watch.run,
     indicators,
     causes,
   });
@@ -99,6 +104,30 @@ export function describe(model: UnitModel, state: UnitState, taken: Taken, ask: 
   );
   const counts = countsOf(model, state, taken);
   return { estimate, profile, events, counts, watch, ...(cycle === null ? {} : { cycle }) };
+}
+
+/** What was told of the end of the discharge that runs, and what is expected of it now. */
+function followRun(model: UnitModel, state: UnitState, taken: Taken, estimate: Estimate): void {
+  const { unit, machine } = model;
+  const { watch } = state;
+  const { power_W } = taken.conditions;
+  const own_W = machine.auxiliary_running_W;
+  const share = (Math.abs(power_W) + own_W) / (unit.rated_power_W + own_W);
+  const run = stepRunEnd(
+    watch.run,
+    {
+      ...{ time_ms: taken.scan.time_ms, mode: estimate.mode, quality: estimate.quality, power_W },
+      roughly_h: (estimate.state_of_charge * unit.rated_hours) / share,
+      isNear: isOutletNear(unit, estimate),
+      isAlarmed: unit.stores.some(({ id }) => watch.conditions[`${OUTLET_ALARM}/${id}`]?.raised),
+    },
+    {
+      hours: (power) => computeHours(hoursInput(model, state, power), power).hours,
+      central: (power) => centralHours(hoursInput(model, state, power), power),
+    },
+  );
+  if (run === undefined) delete watch.run;
+  else watch.run = run;
 }
 
 /** Measured pressure drop by store; null where its reading is missing. */

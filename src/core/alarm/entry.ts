@@ -7,6 +7,8 @@ import type { TransitionKind } from './step.js';
 
 /** An alarm or alert with its state, as it is listed. Times are ISO 8601 UTC. */
 export interface AlarmEntry extends Omit<WatchEvent, 'transition'>, AlarmText {
+  /** Time within which acting still helps [h]: what the event tells, else what is usual. */
+  readonly respond_within_h: number;
   readonly state: AlarmStateName;
   /** Letter of the standard's diagram. */
   readonly letter: string;
@@ -34,6 +36,9 @@ export interface RecordedTransition {
 
 const iso = (ms: number | null) => new Date(ms ?? 0).toISOString();
 
+const hoursBetween = (from: string, to: string) =>
+  Math.max(0, (Date.parse(to) - Date.parse(from)) / 3.6e6);
+
 /** @param event that raised it last; null where it was held back before it was ever raised */
 export function entryOf(id: AlarmId, alarm: AlarmState, event: WatchEvent | null): AlarmEntry {
   const { shelf, service } = alarm;
@@ -41,6 +46,9 @@ export function entryOf(id: AlarmId, alarm: AlarmState, event: WatchEvent | null
   return {
     ...told,
     ...ALARM_TEXTS[id.kind],
+    ...(event?.act_by === undefined
+      ? {}
+      : { respond_within_h: hoursBetween(event.time, event.act_by) }),
     state: alarm.state,
     letter: STATE_LETTERS[alarm.state],
     active: alarm.active,

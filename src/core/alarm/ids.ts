@@ -34,11 +34,13 @@ const SUBJECTS: Readonly<Record<EventKind, Subjects>> = {
   estimate_blind: UNIT,
   data_stale: UNIT,
   front_spread: STORES,
-  sensor_rejected: ({ stores }) =>
-    stores.flatMap(({ id, strings }) => [
+  sensor_rejected: ({ stores, channels }) => [
+    ...stores.flatMap(({ id, strings }) => [
       id,
       ...strings.flatMap((string) => string.thermocouples.map((one) => one.id)),
     ]),
+    ...channels.filter(({ role }) => role.kind === 'pressure_drop').map(({ id }) => id),
+  ],
   front_view_disagrees: STRINGS,
   gas_temperature_off: ({ channels }) =>
     channels.filter(({ role }) => role.kind === 'gas_temperature').map(({ id }) => id),

@@ -9,11 +9,14 @@ export interface AlarmText {
   readonly cause: string;
   readonly consequence: string;
   readonly action: string;
-  /** Time within which acting still helps [h]: of alarms an hour at most, of alerts days. */
+  /**
+   * Time within which acting still helps [h]: of alarms an hour at most, of alerts days. Where an event
+   * says until when (`act_by`), that counts.
+   */
   readonly respond_within_h: number;
 }
 
-/** Last outlet margin goes in about this time at rated power: front width over front speed. */
+/** Of an outlet near its limit where no end is known: front width over front speed at rated power. */
 const BEFORE_OUTLET_H = 0.5;
 const AT_ONCE_H = 0.25;
 const SHIFT_H = 8;
@@ -22,9 +25,9 @@ const WEEK_H = 168;
 
 export const ALARM_TEXTS: Readonly<Record<EventKind, AlarmText>> = {
   outlet_near_limit: {
-    cause: 'The front has reached the discharge outlet: the store runs out.',
-    consequence: 'The discharge ends at its outlet limit; power that was sold is not delivered.',
-    action: 'Prepare the change-over, or lower the power; look at the remaining hours.',
+    cause: 'The store runs out earlier than was told for this discharge, or unannounced.',
+    consequence: 'The discharge ends at its limit; power that was sold is not delivered.',
+    action: 'Lower the power or prepare the change-over, and tell who sells.',
     respond_within_h: BEFORE_OUTLET_H,
   },
   pressure_drop_near_limit: {

@@ -38,6 +38,8 @@ export interface WatchEvent {
   readonly time: string;
   readonly value: number | null;
   readonly limit: number | null;
+  /** Until when the operator can act, ISO 8601 UTC; absent: not known, or nothing for him to do. */
+  readonly act_by?: string | undefined;
   /** Plain sentence with the value and what it means. */
   readonly message: string;
 }

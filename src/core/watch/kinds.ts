@@ -3,9 +3,9 @@ import type { IndicatorKind } from './indicator.js';
 
 /**
  * Alarm or alert, and how urgent. After ISA-18.2 an alarm needs the operator to act in time. Three of
- * the conditions watched here do: an outlet close to its limit ends the discharge within the hour; a
- * pressure drop close to its limit trips the machine at the next rise of flow; and a discharge that
- * runs on an estimate which has lost its readings runs into its outlet limit unannounced, so that the
+ * the conditions watched here do: a discharge that ends within the hour and earlier than was told has
+ * to be answered by power or by a change-over (one that ends as told asks for nothing); a pressure
+ * drop close to its limit trips the machine at the next rise of flow; and a discharge that runs on an estimate which has lost its readings runs into its outlet limit unannounced, so that the
  * operator has to take the control system's outlets for a guide now. The others inform those who look
  * after bed, sensors and network; missing data is the most urgent of them. While charging or standing
  * it costs nothing within the hour, so it is no alarm there.
@@ -64,11 +64,15 @@ export interface EventParts {
   readonly value: number | null;
   readonly limit: number | null;
   readonly message: string;
+  /** Where the state makes it another than that of the kind. */
+  readonly priority?: WatchEvent['priority'];
+  /** Until when the operator can act [ms]. */
+  readonly act_by_ms?: number;
 }
 
 /** Puts an event together; numbers that are not finite become null. */
 export function watchEvent(parts: EventParts): WatchEvent {
-  const { unit, kind, subject, time_ms, ...rest } = parts;
+  const { unit, kind, subject, time_ms, act_by_ms, ...rest } = parts;
   const finite = (value: number | null) =>
     value !== null && Number.isFinite(value) ? value : null;
   return {
@@ -81,5 +85,6 @@ export function watchEvent(parts: EventParts): WatchEvent {
     value: finite(parts.value),
     limit: finite(parts.limit),
     time: new Date(time_ms).toISOString(),
+    ...(act_by_ms === undefined ? {} : { act_by: new Date(act_by_ms).toISOString() }),
   };
 }

@@ -1,10 +1,11 @@
-import type { StoreKind } from '../definitions.js';
+import type { Mode } from '../definitions.js';
 import type { RejectedSensor, SensorVerdict } from '../estimate.js';
 import type { GasDoubt } from '../track/gasDoubts.js';
 import type { CauseView } from './causes.js';
 import { CAUSES } from './causeTable.js';
 import { waitingFor } from './consequences.js';
 import type { IndicatorView } from './indicator.js';
+import type { DropFault } from './operatorAlarms.js';
 
 /** Sentences for a tired person: what is the case, by how much, what it means, what to look at. */
 
@@ -88,28 +89,6 @@ export function staleReturned(unit: string): string {
   return `Unit ${unit}: readings arrive again.`;
 }
 
-export function outletRaised(
-  store: string,
-  kind: StoreKind,
-  outlet_K: number,
-  stop_K: number,
-): string {
-  const margin = kind === 'hot' ? outlet_K - stop_K : stop_K - outlet_K;
-  const [side, drift] = kind === 'hot' ? ['above', 'falling'] : ['below', 'rising'];
-  const where =
-    margin >= 0
-      ? `${margin.toFixed(1)} K ${side} the limit of ${degC(stop_K)} where the discharge ends`
-      : `${(-margin).toFixed(1)} K past the limit of ${degC(stop_K)} where the discharge ends`;
-  return (
-    `Store ${store}: its outlet is at ${degC(outlet_K)}, ${where}, and ${drift} as the store runs ` +
-    'out. Prepare the change-over or lower the power, and look at the remaining hours.'
-  );
-}
-
-export function outletReturned(store: string): string {
-  return `Store ${store}: its outlet is away from its limit again, or the discharge has ended.`;
-}
-
 export function dropRaised(store: string, drop_Pa: number, most_Pa: number): string {
   const share = Math.round((100 * drop_Pa) / most_Pa);
   return (
@@ -119,8 +98,32 @@ export function dropRaised(store: string, drop_Pa: number, most_Pa: number): str
   );
 }
 
-export function dropReturned(store: string): string {
-  return `Store ${store}: its pressure drop is away from its limit again, or the unit stands.`;
+/** @param why it stands; its drop is away from the limit; no reading tells any more */
+export function dropReturned(store: string, why: 'stands' | 'away' | 'lost'): string {
+  const words = {
+    stands: 'the unit stands, without flow and pressure drop.',
+    away: 'its pressure drop is away from its limit again.',
+    lost:
+      'its pressure drop can no longer be judged, without a reading that can be for ten minutes; it may ' +
+      'still be near its limit. Go by the flow and the machine, and look at the transmitter.',
+  };
+  return `Store ${store}: ${words[why]}`;
+}
+
+export function dropSensorRaised(channel: string, store: string, fault: DropFault): string {
+  const what = {
+    silent: 'gives no reading that can be',
+    negative: 'reads below zero while gas flows',
+    beyond: 'reads several times what may ever be over the bed',
+  }[fault];
+  return (
+    `Pressure drop ${channel} of store ${store} ${what}: it is not used, and no alarm of it can be told. ` +
+    'Look at its transmitter, the range, the impulse lines and which of them is which.'
+  );
+}
+
+export function dropSensorReturned(channel: string): string {
+  return `Pressure drop ${channel} is used again.`;
 }
 
 export function blindRaised(unit: string, quality: string): string {
@@ -131,8 +134,9 @@ export function blindRaised(unit: string, quality: string): string {
   );
 }
 
-export function blindReturned(unit: string): string {
-  return `Unit ${unit}: its estimate is a guide again, or the discharge has ended.`;
+export function blindReturned(unit: string, mode: Mode): string {
+  if (mode === 'discharge') return `Unit ${unit}: its estimate is a guide again.`;
+  return `Unit ${unit}: the discharge has ended; it ${mode === 'charge' ? 'charges' : 'stands'}.`;
 }
 
 export function gasRaised({ channel, store, end, off_K, rock_K }: GasDoubt): string {

@@ -15,9 +15,11 @@ import { isConsequence, MAY_FOLLOW } from './consequences.js';
 import type { EventKind, WatchEvent } from './event.js';
 import type { IndicatorView } from './indicator.js';
 import { INDICATORS_VERSION, type IndicatorStates } from './indicators.js';
-import { INDICATOR_EVENTS, watchEvent } from './kinds.js';
+import { type EventParts, INDICATOR_EVENTS, watchEvent } from './kinds.js';
 import * as say from './messages.js';
-import { watchBlind, watchDrop } from './operatorAlarms.js';
+import { type DropsSeen, watchBlind, watchDrops } from './operatorAlarms.js';
+import { watchOutlets } from './outletAlarm.js';
+import type { RunEndState } from './runEnd.js';
 
 export interface WatchInput {
   /** Source time of the scan [ms]. */
@@ -28,6 +30,8 @@ export interface WatchInput {
   readonly readingsSeen: number;
   /** Measured pressure drop by store id [Pa], null: no reading now; absent: none is measured. */
   readonly drops_Pa?: Readonly<Record<string, number | null>>;
+  /** What was told of the end of the discharge that runs, and what is expected; absent: nothing. */
+  readonly run?: RunEndState | undefined;
   /** What is known of the gas-temperature channels; absent: nothing. */
   readonly gas?: readonly GasDoubt[];
   /** What the indicators show, and what is probably behind it; absent: nothing. */
@@ -40,6 +44,10 @@ export interface WatchState {
   conditions: Record<string, ConditionState>;
   /** Source time of the last scan with a reading; of the first scan before there was one [ms]. */
   lastReading_ms: number | null;
+  /** Of the discharge that runs; absent while there is none. */
+  run?: RunEndState;
+  /** When each store's pressure drop was last read; absent before. */
+  drops?: DropsSeen;
   /** Absent in a state saved before there were any. */
   indicators?: IndicatorStates;
   /** INDICATORS_VERSION of that; states of another one are not taken over. */
@@ -87,18 +95,20 @@ export function stepWatch(
     else state.conditions[key] = condition;
     if (transition === null) return;
     const parts = { unit: unit.id, kind, subject, transition, time_ms: input.time_ms };
-    events.push(watchEvent({ ...parts, value, limit, message: message(transition === 'raised') }));
+    const said = message(transition === 'raised');
+    const told = typeof said === 'string' ? { message: said } : said;
+    events.push(watchEvent({ ...parts, value, limit, ...told }));
   };
 
   watchAge(unit, state, input, step);
   watchBlind(unit, input.mode, input.estimate.quality, step);
-  watchDrop(unit, input.mode, input.drops_Pa ?? {}, step);
+  watchDrops(unit, state, input, step);
   for (const store of unit.stores) {
     const estimate = input.estimate.stores[store.id];
     if (estimate === undefined) continue;
     watchSensors(unit, state, store, estimate, step);
-    watchOutlet(unit, store, estimate, input.mode, step);
   }
+  watchOutlets(unit, input, step);
   watchGas(input, step);
   watchIndicators(state, input, step);
   return events;
@@ -111,8 +121,11 @@ export type Step = (
   delays: Pick<ConditionTiming, 'on_delay_s' | 'off_delay_s'>,
   value: number | null,
   limit: number | null,
-  message: (raised: boolean) => string,
+  message: (raised: boolean) => string | Said,
 ) => void;
+
+/** A sentence, and what the state makes of priority and time to act. */
+export type Said = Pick<EventParts, 'message' | 'priority' | 'act_by_ms'>;
 
 /** Age in source time, by scans without any reading. */
 function watchAge(unit: UnitDefinition, state: WatchState, input: WatchInput, step: Step): void {
@@ -162,29 +175,6 @@ function watchSensors(
       sensor ? say.sensorRaised(store.id, sensor) : say.sensorReturned(store.id, id),
     );
   }
-}
-
-/** Only while discharging: a store that stands or charges runs into no discharge limit. */
-function watchOutlet(
-  unit: UnitDefinition,
-  store: StoreDefinition,
-  estimate: StoreEstimate,
-  mode: Mode,
-  step: Step,
-): void {
-  const hot = store.kind === 'hot';
-  const stop = hot ? unit.limits.hot_outlet_min_K : unit.limits.cold_outlet_max_K;
-  if (stop === null) return;
-  const rule = unit.watch.outlet_margin_K;
-  const outlet = estimate.outlet_K;
-  const margin = outlet === null ? null : hot ? outlet - stop : stop - outlet;
-  const evidence =
-    mode === 'discharge' ? evidenceOf({ ...rule, value: margin, sense: 'below' }) : 'clear';
-  step('outlet_near_limit', store.id, evidence, rule, margin, rule.limit, (raised) =>
-    raised && outlet !== null
-      ? say.outletRaised(store.id, store.kind, outlet, stop)
-      : say.outletReturned(store.id),
-  );
 }
 
 /** Found after long flow and ended likewise, so that nothing is left to wait for. */
