@@ -100,7 +100,7 @@ plant.run(scheduleFor(values.schedule, geometry, length_s), ({ time_s, readings 
   const step = advance(unit, state, scan, ask);
   history.write(() => {
     history.estimates.add(unit, step.estimate, measuredIn(unit, scan, step.estimate));
-    if (step.profile) history.estimates.addProfile(step.profile);
+    if (step.profile) history.profiles.add(step.profile);
     for (const event of step.events) history.events.add(event);
     if (step.cycle) history.cycles.add(step.cycle);
     if (step.watch) history.watch.add(step.watch);

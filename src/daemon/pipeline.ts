@@ -217,7 +217,7 @@ export class Pipeline {
     try {
       const news = history.write(() => {
         const isNew = history.estimates.add(runner.unit, estimate, step.measured);
-        if (profile) history.estimates.addProfile(profile);
+        if (profile) history.profiles.add(profile);
         if (cycle) history.cycles.add(cycle);
         if (watch) history.watch.add(watch);
         // A scan that is known, as in a replay after a restart, has moved its alarms already.
@@ -258,7 +258,7 @@ export class Pipeline {
       history.write(() => {
         history.checkpoints.add(runner.unit, checkpoint);
         runner.unsaved = false;
-        if (runner.view.profile) history.estimates.addProfile(runner.view.profile, true);
+        if (runner.view.profile) history.profiles.add(runner.view.profile, true);
       });
     } catch (thrown) {
       this.storeFailed('history_failures', thrown);

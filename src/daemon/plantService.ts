@@ -2,17 +2,19 @@ import type { History } from '../adapters/history/history.js';
 import type {
   AlarmAnswer,
   HealthPart,
-  HistoryPoint,
   PlantService,
   ReportQuestion,
   ServiceMessage,
+  Spread,
+  StoredHistory,
+  StoredMoment,
   UnitNow,
 } from '../adapters/http/service.js';
 import type { StoreConfig } from '../config/site.js';
 import type { AlarmEntry, RecordedTransition } from '../core/alarm/entry.js';
 import type { AlarmReport } from '../core/alarm/report.js';
 import type { Mode } from '../core/definitions.js';
-import type { DispatchAnswer } from '../core/estimate.js';
+import type { DispatchAnswer, ProfileView } from '../core/estimate.js';
 import type { PlanAnswer, PlanQuestion } from '../core/plan/ask.js';
 import type { OffersAsk } from '../core/plan/offerAsk.js';
 import type { OfferReport } from '../core/plan/offerReport.js';
@@ -51,6 +53,9 @@ export interface PlantServiceParts {
   kept(unit: string, table: KeptTable): void;
 }
 
+/** An estimate further off than this is of another moment than the profile [ms]. */
+const NEAR_MS = 900_000;
+
 /** What the daemon offers to pages and programs; it reads, but for what is done to alarms. */
 export class DaemonService implements PlantService {
   private readonly listeners = new Set<(message: ServiceMessage) => void>();
@@ -76,9 +81,9 @@ export class DaemonService implements PlantService {
     const age_s =
       newest_ms === null ? null : Math.max(0, (this.parts.clock.now() - newest_ms) / 1000);
     const isOld = age_s !== null && age_s > unit.watch.data_age_s.limit;
-    const { estimate, profile, dispatch, measured, counts } = view;
+    const { estimate, profile, dispatch, measured, counts, headroom } = view;
     const stale = isOld || estimate?.quality === 'stale';
-    return { unit, estimate, profile, dispatch, age_s, stale, counts, ...measured };
+    return { unit, estimate, profile, dispatch, headroom, age_s, stale, counts, ...measured };
   }
 
   async hours(
@@ -138,9 +143,32 @@ export class DaemonService implements PlantService {
     return this.parts.questions.sensors(runner.unit, over === 'day' ? null : runner.snapshot());
   }
 
-  history(unit: string, from_ms: number, to_ms: number, points: number): HistoryPoint[] {
+  history(...[unit, ...ask]: Parameters<PlantService['history']>): StoredHistory {
     this.runner(unit);
-    return this.parts.history.estimates.series(unit, from_ms, to_ms, points);
+    return this.parts.history.estimates.series(unit, ...ask);
+  }
+
+  momentAt(unit: string, time_ms: number): StoredMoment | null {
+    this.runner(unit);
+    const profile = this.parts.history.profiles.atOrBefore(unit, time_ms);
+    return profile && this.moment(profile);
+  }
+
+  moments(...[unit, ...ask]: Parameters<PlantService['moments']>): Spread<StoredMoment> {
+    this.runner(unit);
+    const chosen = this.parts.history.profiles.spread(unit, ...ask);
+    return { ...chosen, rows: chosen.rows.map((profile) => this.moment(profile)) };
+  }
+
+  watchHistory(...[unit, ...ask]: Parameters<PlantService['watchHistory']>): Spread<WatchView> {
+    this.runner(unit);
+    return this.parts.history.watch.spread(unit, ...ask);
+  }
+
+  private moment(profile: ProfileView): StoredMoment {
+    const { estimates } = this.parts.history;
+    const then = estimates.near(profile.unit, Date.parse(profile.time), NEAR_MS);
+    return { profile, ...(then ?? { estimate: null, flow_kg_s: null, power_MW_el: null }) };
   }
 
   historySeries(unit: string): string[] {

@@ -67,7 +67,7 @@ export function restoreRunner(runner: UnitRunner, parts: RestoreParts): void {
 function showLast({ unit: { id }, view }: UnitRunner, history: History): void {
   Object.assign(view, {
     estimate: history.estimates.latest(id),
-    profile: history.estimates.latestProfile(id),
+    profile: history.profiles.latest(id),
     dispatch: history.estimates.latestDispatch(id),
     watch: history.watch.latest(id),
   });

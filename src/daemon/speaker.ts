@@ -42,6 +42,7 @@ export class Speaker {
     this.headroomOnHours = new HeadroomOnHours({
       ...{ questions, notices, now: () => performance.now() },
       answered: ({ unit, view }, { time, answers }) => {
+        view.headroom = { time, answers };
         const head = headOf(unit, time, view.estimate?.quality ?? 'blind');
         announcer().headroom({ ...head, answers });
       },

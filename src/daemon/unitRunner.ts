@@ -3,6 +3,7 @@ import type { JournalEntry } from '../adapters/history/journal.js';
 import type { Measured } from '../adapters/history/series.js';
 import type { UnitDefinition } from '../core/definitions.js';
 import type { DispatchAnswer, Estimate, ProfileView } from '../core/estimate.js';
+import type { Headroom } from '../core/plan/headroom.js';
 import {
   Assembler,
   type AssemblerOptions,
@@ -50,6 +51,8 @@ export interface RunnerView {
   estimate: Estimate | null;
   profile: ProfileView | null;
   dispatch: { time: string; answers: readonly DispatchAnswer[] } | null;
+  /** Of this process; null before the first. */
+  headroom: { time: string; answers: readonly Headroom[] } | null;
   measured: Measured;
   /** Of the newest scan; null before the first of this process. */
   counts: ScanCounts | null;
@@ -68,6 +71,7 @@ export class UnitRunner {
     estimate: null,
     profile: null,
     dispatch: null,
+    headroom: null,
     measured: { flow_kg_s: null, power_MW_el: null },
     counts: null,
     watch: null,

@@ -263,7 +263,9 @@ describe('a daemon with its own broker', () => {
     const { time, answers } = await daemon.service.hours('u', [1, 2]);
     expect(time).toBe(new Date(START).toISOString());
     expect(answers.map((one) => one.power_MW)).toEqual([1, 2]);
-    expect(daemon.service.history('u', START, START + 1, 10)).toMatchObject([{ quality: 'good' }]);
+    expect(daemon.service.history('u', START, START + 1, 10, ['quality'])).toMatchObject({
+      points: [{ quality: 'good' }],
+    });
     await daemon.stop();
     await daemon.stop();
   });

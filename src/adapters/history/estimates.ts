@@ -1,12 +1,10 @@
 import type { UnitDefinition } from '../../core/definitions.js';
-import type { DispatchAnswer, Estimate, ProfileView } from '../../core/estimate.js';
+import type { DispatchAnswer, Estimate } from '../../core/estimate.js';
+import { stretchFor } from './buckets.js';
 import type { Database } from './database.js';
 import type { Sequence } from './sequence.js';
-import { hasExtremes, type Measured, seriesNames, seriesValues } from './series.js';
-import { type SeriesRow, type ThinnedPoint, thin } from './thin.js';
-
-/** Spacing of the profiles that are kept [ms]; the newest is held by the daemon itself. */
-const PROFILE_EVERY_MS = 600_000;
+import { type Measured, seriesNames, seriesValues, wordsOf } from './series.js';
+import { partOf, pointsOf, type SeriesPart, type ThinnedPoint, thin } from './thin.js';
 
 interface StoredRow {
   time: number;
@@ -14,11 +12,15 @@ interface StoredRow {
   series: Buffer;
 }
 
-/** Estimates, dispatch answers and profiles by unit and time. A time once written stays as it is. */
+/** An estimate as it was stored, with what was measured at its scan. */
+export interface EstimateThen extends Measured {
+  readonly estimate: Estimate;
+}
+
+/** Estimates and dispatch answers by unit and time. A time once written stays as it is. */
 export class Estimates {
   private readonly layouts = new Map<number, readonly string[]>();
   private readonly layoutOfUnit = new Map<string, number>();
-  private readonly profileDue = new Map<string, number>();
 
   constructor(
     private readonly database: Database,
@@ -51,18 +53,6 @@ export class Estimates {
     );
   }
 
-  /** Keeps a profile every 10 minutes of source time; with `always` this one in any case. */
-  addProfile(profile: ProfileView, always = false): void {
-    const time_ms = Date.parse(profile.time);
-    const due_ms = this.profileDue.get(profile.unit) ?? Number.NEGATIVE_INFINITY;
-    if (!always && time_ms < due_ms) return;
-    const stretch = Math.floor(time_ms / PROFILE_EVERY_MS) + 1;
-    this.profileDue.set(profile.unit, stretch * PROFILE_EVERY_MS);
-    this.database
-      .prepare('INSERT OR REPLACE INTO profiles (unit, time, json) VALUES (?, ?, ?)')
-      .run(profile.unit, time_ms, JSON.stringify(profile));
-  }
-
   latest(unit: string): Estimate | null {
     return this.newest<Estimate>('estimates', unit)?.content ?? null;
   }
@@ -78,22 +68,28 @@ export class Estimates {
     return json === undefined ? null : (JSON.parse(json) as Estimate);
   }
 
-  /** The profile that was kept nearest to a time, at most `within_ms` from it. */
-  profileNear(unit: string, time_ms: number, within_ms: number): ProfileView | null {
-    const json = this.database
-      .prepare(
-        `SELECT json FROM profiles WHERE unit = @unit AND time BETWEEN @from AND @to
-         ORDER BY abs(time - @time_ms) LIMIT 1`,
-      )
-      .pluck()
-      .get({ unit, time_ms, from: time_ms - within_ms, to: time_ms + within_ms }) as
-      | string
-      | undefined;
-    return json === undefined ? null : (JSON.parse(json) as ProfileView);
-  }
-
-  latestProfile(unit: string): ProfileView | null {
-    return this.newest<ProfileView>('profiles', unit)?.content ?? null;
+  /** The estimate nearest to a time, at most `within_ms` from it, with what was measured then. */
+  near(unit: string, time_ms: number, within_ms: number): EstimateThen | null {
+    const select = 'SELECT time, json, layout, series FROM estimates WHERE unit = ? AND time';
+    const before = this.database.prepare(`${select} BETWEEN ? AND ? ORDER BY time DESC LIMIT 1`);
+    const after = this.database.prepare(`${select} BETWEEN ? AND ? ORDER BY time LIMIT 1`);
+    const found = [
+      before.get(unit, time_ms - within_ms, time_ms),
+      after.get(unit, time_ms, time_ms + within_ms),
+    ] as ((StoredRow & { json: string }) | undefined)[];
+    const off = (row: StoredRow) => Math.abs(row.time - time_ms);
+    const [nearest] = found.filter((row) => row !== undefined).sort((a, b) => off(a) - off(b));
+    if (nearest === undefined) return null;
+    const { names, means } = this.part(nearest);
+    const measured = (name: keyof Measured) => {
+      const value = means[names.indexOf(name)];
+      return value === undefined || Number.isNaN(value) ? null : value;
+    };
+    return {
+      estimate: JSON.parse(nearest.json) as Estimate,
+      flow_kg_s: measured('flow_kg_s'),
+      power_MW_el: measured('power_MW_el'),
+    };
   }
 
   latestDispatch(unit: string): { time: string; answers: DispatchAnswer[] } | null {
@@ -112,14 +108,32 @@ export class Estimates {
     return rows.map((json) => JSON.parse(json) as Estimate);
   }
 
-  /** The series of a unit, thinned to at most `points` points; see thin.ts. */
-  series(unit: string, from_ms: number, to_ms: number, points: number): ThinnedPoint[] {
-    const where = 'FROM estimates WHERE unit = ? AND time BETWEEN ? AND ?';
-    const count = this.database.prepare(`SELECT count(*) ${where}`).pluck();
-    const select = this.database.prepare(`SELECT time, layout, series ${where} ORDER BY time`);
-    const rows = select.iterate(unit, from_ms, to_ms) as IterableIterator<StoredRow>;
-    const many = count.get(unit, from_ms, to_ms) as number;
-    return thin(this.decode(rows), many, from_ms, to_ms, points);
+  /**
+   * Series of a unit over a span of time in at most `points` points, see thin.ts; few enough rows are
+   * given as they are.
+   *
+   * @param names of series, without extremes; null: all
+   */
+  series(
+    unit: string,
+    from_ms: number,
+    to_ms: number,
+    points: number,
+    names: readonly string[] | null = null,
+  ): { points: ThinnedPoint[]; bucket_ms: number | null } {
+    const wanted = names && new Set(names);
+    const count = this.database
+      .prepare(
+        `SELECT count(*) FROM (SELECT 1 FROM estimates
+           WHERE unit = ? AND time BETWEEN ? AND ? LIMIT ?)`,
+      )
+      .pluck();
+    const rows = this.parts(unit, from_ms, to_ms);
+    if ((count.get(unit, from_ms, to_ms, points + 1) as number) <= points) {
+      return { points: pointsOf(rows, wanted), bucket_ms: null };
+    }
+    const { bucket_ms } = stretchFor(from_ms, to_ms, points);
+    return { points: thin(rows, bucket_ms, wanted), bucket_ms };
   }
 
   /**
@@ -132,12 +146,8 @@ export class Estimates {
     to_ms: number,
     names: readonly string[],
   ): IterableIterator<{ time_ms: number; values: number[] }> {
-    const select = this.database.prepare(
-      'SELECT time, layout, series FROM estimates WHERE unit = ? AND time BETWEEN ? AND ? ORDER BY time',
-    );
-    const rows = select.iterate(unit, from_ms, to_ms) as IterableIterator<StoredRow>;
-    for (const row of this.decode(rows)) {
-      const values = names.map((name) => row.values[row.names.indexOf(name)] ?? Number.NaN);
+    for (const row of this.parts(unit, from_ms, to_ms)) {
+      const values = names.map((name) => row.means[row.names.indexOf(name)] ?? Number.NaN);
       yield { time_ms: row.time_ms, values };
     }
   }
@@ -145,17 +155,23 @@ export class Estimates {
   /** Names that `series` may give for this unit. */
   names(unit: UnitDefinition): string[] {
     return seriesNames(unit).flatMap((name) =>
-      hasExtremes(name) ? [name, `${name}.min`, `${name}.max`] : [name],
+      wordsOf(name) ? [name] : [name, `${name}.min`, `${name}.max`],
     );
   }
 
-  private *decode(rows: Iterable<StoredRow>): IterableIterator<SeriesRow> {
-    for (const row of rows) {
-      // SQLite's buffers are not aligned to eight bytes.
-      const bytes = Uint8Array.prototype.slice.call(row.series);
-      const values = new Float64Array(bytes.buffer, bytes.byteOffset, bytes.byteLength / 8);
-      yield { time_ms: row.time, names: this.layouts.get(row.layout) ?? [], values };
-    }
+  private *parts(unit: string, from_ms: number, to_ms: number): IterableIterator<SeriesPart> {
+    const select = this.database.prepare(
+      'SELECT time, layout, series FROM estimates WHERE unit = ? AND time BETWEEN ? AND ? ORDER BY time',
+    );
+    const rows = select.iterate(unit, from_ms, to_ms) as IterableIterator<StoredRow>;
+    for (const row of rows) yield this.part(row);
+  }
+
+  private part({ time, layout, series }: StoredRow): SeriesPart {
+    // SQLite's buffers are not aligned to eight bytes.
+    const bytes = Uint8Array.prototype.slice.call(series);
+    const values = new Float64Array(bytes.buffer, bytes.byteOffset, bytes.byteLength / 8);
+    return partOf(time, this.layouts.get(layout) ?? [], values);
   }
 
   private newest<T>(table: string, unit: string): { time: number; content: T } | null {

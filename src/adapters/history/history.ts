@@ -8,6 +8,7 @@ import { EventQueue } from './eventQueue.js';
 import { Events } from './events.js';
 import { Offers } from './offers.js';
 import { Outbox } from './outbox.js';
+import { Profiles } from './profiles.js';
 import { applyRetention, type RetentionCounts } from './retention.js';
 import { HISTORY_SCHEMA } from './schema.js';
 import { Sequence } from './sequence.js';
@@ -22,6 +23,7 @@ export class History {
   private opened: {
     readonly database: Database;
     readonly estimates: Estimates;
+    readonly profiles: Profiles;
     readonly events: Events;
     readonly alarms: Alarms;
     readonly checkpoints: Checkpoints;
@@ -55,6 +57,7 @@ export class History {
     this.opened = {
       database,
       estimates: new Estimates(database, sequence),
+      profiles: new Profiles(database),
       events: new Events(database, sequence, alarms),
       alarms,
       checkpoints: new Checkpoints(database),
@@ -73,6 +76,9 @@ export class History {
 
   get estimates(): Estimates {
     return this.parts.estimates;
+  }
+  get profiles(): Profiles {
+    return this.parts.profiles;
   }
   get events(): Events {
     return this.parts.events;

@@ -122,13 +122,22 @@ function readingsOf(
   };
 }
 
+const OF_STORE = ['soc', 'width_m', 'spread_ratio', 'heat_transfer_factor'];
+
 function seriesOf(
   history: History,
   unit: UnitDefinition,
   from_ms: number,
   to_ms: number,
 ): ReportPoint[] {
-  return history.estimates.series(unit.id, from_ms, to_ms, POINTS).map((point): ReportPoint => {
+  const names = ['state_of_charge', 'power_MW_el'].concat(
+    unit.stores.flatMap(({ id, strings }) => [
+      ...OF_STORE.map((name) => `${id}.${name}`),
+      ...strings.map((string) => `${id}.${string.id}.flow_factor`),
+    ]),
+  );
+  const { points } = history.estimates.series(unit.id, from_ms, to_ms, POINTS, names);
+  return points.map((point): ReportPoint => {
     const number = (name: string) => {
       const value = point[name];
       return typeof value === 'number' ? value : null;
@@ -176,7 +185,7 @@ function profilesOf(
       ? profiles_at_ms.map((time_ms) => ({ time_ms, words: 'as asked' }))
       : ends.sort((a, b) => a.time_ms - b.time_ms);
   return wanted.flatMap(({ time_ms, words }): ReportProfile[] => {
-    const profile = history.estimates.profileNear(unit.id, time_ms, NEAR_MS);
+    const profile = history.profiles.near(unit.id, time_ms, NEAR_MS);
     if (profile === null) return [];
     const stores = Object.entries(profile.stores).map(([id, { x_m, mean_K, readings }]) => [
       id,

@@ -97,11 +97,6 @@ export function seriesValues(
   return Float64Array.from(values, (value) => value ?? Number.NaN);
 }
 
-/** Series of which a thinned answer also gives the extremes, as `NAME.min` and `NAME.max`. */
-export function hasExtremes(name: string): boolean {
-  return name === 'state_of_charge' || /\.(spread_ratio|outlet_degC)$/.test(name);
-}
-
 /** The words of a series of words, undefined for one of numbers. */
 export function wordsOf(name: string): readonly string[] | undefined {
   return Object.hasOwn(WORDS, name) ? WORDS[name] : undefined;

@@ -1,6 +1,7 @@
 import { deflateSync, inflateSync } from 'node:zlib';
 import { statesOf, type WatchView } from '../../core/watch/causes.js';
 import type { Database } from './database.js';
+import { type Chosen, chooseRows } from './spread.js';
 
 /** Spacing of the views that are kept [ms], besides those in which an indicator changed its state. */
 const EVERY_MS = 600_000;
@@ -53,6 +54,13 @@ export class WatchViews {
       .pluck()
       .all(unit, from_ms, to_ms, most) as Buffer[];
     return rows.map(viewOf);
+  }
+
+  /** Views of a span of time, oldest first, at most `points`; see chooseRows. */
+  spread(unit: string, from_ms: number, to_ms: number, points: number): Chosen<WatchView> {
+    const span = { from_ms, to_ms };
+    const chosen = chooseRows(this.database, 'watch', 'content', unit, span, points, EVERY_MS);
+    return { ...chosen, rows: chosen.rows.map(({ content }) => viewOf(content as Buffer)) };
   }
 
   private statesBefore(unit: string): string | null {

@@ -15,6 +15,7 @@ import { alarmRoutes } from './routes/alarms.js';
 import { historyRoutes } from './routes/history.js';
 import { offerRoutes } from './routes/offers.js';
 import { planRoutes } from './routes/plan.js';
+import { profileRoutes } from './routes/profiles.js';
 import { reportRoutes } from './routes/report.js';
 import { scheduleRoutes } from './routes/schedule.js';
 import { statusRoutes } from './routes/status.js';
@@ -171,6 +172,7 @@ export async function createHttpApp(
       for (const add of [
         statusRoutes,
         unitRoutes,
+        profileRoutes,
         planRoutes,
         offerRoutes,
         scheduleRoutes,

@@ -14,6 +14,7 @@ export const FAULT_CODES = [
   'unreadable_body',
   'not_acceptable',
   'no_estimate_yet',
+  'nothing_stored',
   'estimate_stale',
   'too_many_requests',
   'too_many_streams',

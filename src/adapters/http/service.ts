@@ -4,6 +4,7 @@ import type { AlarmReport } from '../../core/alarm/report.js';
 import type { Mode, UnitDefinition } from '../../core/definitions.js';
 import type { DispatchAnswer, Estimate, ProfileView } from '../../core/estimate.js';
 import type { PlanAnswer, PlanQuestion } from '../../core/plan/ask.js';
+import type { Headroom } from '../../core/plan/headroom.js';
 import type { OffersAsk } from '../../core/plan/offerAsk.js';
 import type { OfferReport } from '../../core/plan/offerReport.js';
 import type { KeptOffers } from '../../core/plan/offerSummary.js';
@@ -40,6 +41,8 @@ export interface UnitNow {
   readonly counts?: ScanCounts | null;
   readonly flow_kg_s: number | null;
   readonly power_MW_el: number | null;
+  /** What it can still take, as last worked out in this process; null or absent before. */
+  readonly headroom?: { readonly time: string; readonly answers: readonly Headroom[] } | null;
 }
 
 export interface HealthPart {
@@ -51,6 +54,30 @@ export interface HealthPart {
 export interface HistoryPoint {
   readonly time: string;
   readonly [series: string]: number | string | null;
+}
+
+/** Stored series over a span of time. */
+export interface StoredHistory {
+  readonly points: readonly HistoryPoint[];
+  /** Length of the stretches that a point stands for [ms]; null: points are rows as stored. */
+  readonly bucket_ms: number | null;
+}
+
+/** A stored profile, with the estimate nearest in time and what was measured then. */
+export interface StoredMoment {
+  readonly profile: ProfileView;
+  readonly estimate: Estimate | null;
+  readonly flow_kg_s: number | null;
+  readonly power_MW_el: number | null;
+}
+
+/** What is stored at intervals over a span of time, oldest first. */
+export interface Spread<T> {
+  readonly rows: readonly T[];
+  /** More are stored than these. */
+  readonly thinned: boolean;
+  /** Usual spacing of what is given [ms]. */
+  readonly every_ms: number;
 }
 
 export type ServiceMessage =
@@ -85,9 +112,25 @@ export interface PlantService {
    * null before every store has started.
    */
   sensors(unit: string, over: 'now' | 'day'): Promise<UnitWorth | null>;
-  /** At most `points` rows per call, thinned evenly on the server; series names as documented. */
-  history(unit: string, from_ms: number, to_ms: number, points: number): HistoryPoint[];
+  /**
+   * At most `points` points of the series named. Of more rows a point per stretch: numbers as means
+   * with `NAME.min` and `NAME.max`, words as the last.
+   */
+  history(
+    unit: string,
+    from_ms: number,
+    to_ms: number,
+    points: number,
+    names: readonly string[],
+  ): StoredHistory;
+  /** Names of series that there are, extremes among them. */
   historySeries(unit: string): string[];
+  /** The stored profile at or before a time; null where there is none. */
+  momentAt(unit: string, time_ms: number): StoredMoment | null;
+  /** At most `points` stored profiles of a span. */
+  moments(unit: string, from_ms: number, to_ms: number, points: number): Spread<StoredMoment>;
+  /** At most `points` of what indicators showed in a span. */
+  watchHistory(unit: string, from_ms: number, to_ms: number, points: number): Spread<WatchView>;
   /** What the indicators of the newest scan show; null before the first. */
   watch(unit: string): WatchView | null;
   /** Runs that lie in a span or reach into it, the newest `most` of them, oldest first. */

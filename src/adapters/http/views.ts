@@ -5,14 +5,10 @@ import { limitsView } from '../../core/plan/limitsView.js';
 import { ZERO_CELSIUS_K } from '../../core/units.js';
 import type { UnitWorth } from '../../core/worth/unitWorth.js';
 import { HttpFault } from './faults.js';
-import type {
-  StreamStateView,
-  UnitDefinitionView,
-  UnitProfileView,
-  UnitStateView,
-} from './schema/answers.js';
+import type { StreamStateView, UnitDefinitionView, UnitStateView } from './schema/answers.js';
+import type { PlayedProfileView, UnitProfileView } from './schema/playback.js';
 import type { UnitWorthView } from './schema/worth.js';
-import type { UnitNow } from './service.js';
+import type { StoredMoment, UnitNow } from './service.js';
 
 /** Where a unit has nothing to show yet. */
 export function noEstimate(unit: string): HttpFault {
@@ -140,7 +136,28 @@ function storeProfile(store: ProfileView['stores'][string]) {
   };
 }
 
-export function profileView(profile: ProfileView): Omit<UnitProfileView, 'age_s'> {
+/** A moment of the past as a page draws it. */
+export function momentView(moment: StoredMoment): Omit<UnitProfileView, 'age_s'> {
+  const { profile, estimate, flow_kg_s, power_MW_el } = moment;
+  return {
+    ...profileView(profile),
+    estimate: estimate && estimateView(estimate),
+    ...{ flow_kg_s, power_MW_el },
+  };
+}
+
+/** The same without sigma along the tubes, which is near to half of it. */
+export function withoutSigma(moment: PlayedProfileView): PlayedProfileView {
+  const stores = Object.entries(moment.stores).map(([id, store]) => [
+    id,
+    { ...store, tubes: store.tubes.map(({ sigma_K: _, ...tube }) => tube) },
+  ]);
+  return { ...moment, stores: Object.fromEntries(stores) };
+}
+
+export function profileView(
+  profile: ProfileView,
+): Pick<UnitProfileView, 'time' | 'unit' | 'stores'> {
   return {
     time: profile.time,
     unit: profile.unit,

@@ -8,8 +8,8 @@ import {
   unitHoursSchema,
   unitListSchema,
   unitNowSchema,
-  unitProfileSchema,
 } from '../../../src/adapters/http/schema/answers.js';
+import { unitProfileSchema } from '../../../src/adapters/http/schema/playback.js';
 import { unitWorthSchema } from '../../../src/adapters/http/schema/worth.js';
 import { testApp } from './httpApp.js';
 import { ScriptedPlant } from './scriptedPlant.js';
@@ -56,8 +56,44 @@ describe('the good answers, each held against the schema that documents it', () 
         time: plant.time(),
         age_s: 4,
         stale: false,
+        flow_kg_s: -12.4,
+        power_MW_el: -1.85,
+        dispatchable: {
+          time: plant.time(-2),
+          power_MW: 2,
+          hours: plant.moment.charged * 8 * 0.96,
+          energy_MWh_el: plant.moment.charged * 8 * 0.96 * 2,
+          limited_by: null,
+        },
+        headroom: null,
+        alarms: { high: 0, medium: 0, low: 0 },
+        alerts: 0,
+        unacknowledged: 0,
+        held_back: 0,
       },
     ]);
+  });
+
+  it('counts what is shown of a unit, and tells its firm headroom at rated power', async () => {
+    const { app: server, get, plant } = await app();
+    const alarm = { class: 'alarm', priority: 'high' } as const;
+    plant.raise({ kind: 'outlet_near_limit', subject: 'hot', ...alarm });
+    plant.raise({ kind: 'front_spread', subject: 'hot' });
+    const { id } = plant.raise({ kind: 'front_spread', subject: 'cold' });
+    for (const [action, held] of [
+      ['acknowledge', plant.raise({ kind: 'data_stale', subject: 'north', ...alarm }).id],
+      ['out-of-service', id],
+    ]) {
+      const payload = { id: held, who: 'night shift', why: 'seen' };
+      const url = `/api/alarms/${action}`;
+      expect((await server.inject({ method: 'POST', url, payload })).statusCode).toBe(200);
+    }
+    plant.headroom = { time: plant.time(), powers_MW: [3, 2] };
+    const [unit] = unitListSchema.parse((await get('/api/units')).json()).units;
+    expect(unit).toMatchObject({
+      ...{ alarms: { high: 2, medium: 0, low: 0 }, alerts: 1, unacknowledged: 2, held_back: 1 },
+      headroom: { time: plant.time(), power_MW: 2, hours: plant.moment.charged * 8 * 0.96 },
+    });
   });
 
   it('gives a unit now, converted to the units of the edge', async () => {
@@ -253,6 +289,7 @@ describe('the good answers, each held against the schema that documents it', () 
     expect(Date.parse(history.to) - Date.parse(history.from)).toBe(86_400_000);
     expect(history.rows).toHaveLength(5);
     expect(Object.keys(history.rows[0]!)).toEqual(['time', ...plant.historySeries()]);
+    expect(history).toMatchObject({ thinned: false, bucket_s: null });
   });
 
   it('gives only the series and span asked for', async () => {
@@ -276,7 +313,7 @@ describe('the good answers, each held against the schema that documents it', () 
     expect(lines[0]).toBe('time,state_of_charge');
     expect(lines).toHaveLength(102); // header, 100 rows, nothing after the last CRLF
     expect(lines[97]).toMatch(/Z,$/); // the script's 97th row is a gap
-    const rows = plant.history(
+    const { points: rows } = plant.history(
       'north',
       Date.parse(plant.time()) - 86_400_000,
       Date.parse(plant.time()),
@@ -348,7 +385,7 @@ describe('the good answers, each held against the schema that documents it', () 
     plant.moment = { charged: Number.NaN, mode: 'stand' };
     const list = (await get('/api/units')).json();
     expect(list.units[0].state_of_charge).toBeNull();
-    expect((await get('/api/counters')).json().counters.http_non_finite_numbers).toBe(1);
+    expect((await get('/api/counters')).json().counters.http_non_finite_numbers).toBe(3);
   });
 
   it('describes every route in an OpenAPI document', async () => {
@@ -382,10 +419,12 @@ describe('the good answers, each held against the schema that documents it', () 
       '/api/units/{unit}/offers/history/{no}',
       '/api/units/{unit}/offers/report',
       '/api/units/{unit}/profile',
+      '/api/units/{unit}/profiles',
       '/api/units/{unit}/report',
       '/api/units/{unit}/schedule',
       '/api/units/{unit}/sensors',
       '/api/units/{unit}/watch',
+      '/api/units/{unit}/watch/history',
       '/metrics',
     ]);
     const hours = document.paths['/api/units/{unit}/hours'].get;

@@ -5,6 +5,9 @@ import type {
   PlantService,
   ReportQuestion,
   ServiceMessage,
+  Spread,
+  StoredHistory,
+  StoredMoment,
   UnitNow,
 } from '../../../src/adapters/http/service.js';
 import { STYLE_HASH } from '../../../src/adapters/report/style.js';
@@ -91,6 +94,21 @@ function worthOf(unit: UnitDefinition, over: 'now' | 'day', mode: Mode): UnitWor
       })),
     })),
   };
+}
+
+function within<T>(
+  stored: readonly T[],
+  timeOf: (one: T) => string,
+  from_ms: number,
+  to_ms: number,
+  points: number,
+): Spread<T> {
+  const found = stored.filter((one) => {
+    const time_ms = Date.parse(timeOf(one));
+    return time_ms >= from_ms && time_ms <= to_ms;
+  });
+  const thinned = found.length > points;
+  return { rows: found.slice(-points), thinned, every_ms: 600_000 };
 }
 
 /**
@@ -192,6 +210,10 @@ export class ScriptedPlant implements PlantService {
       age_s: this.started ? this.age_s : null,
       stale: this.stale,
       counts: this.counts,
+      headroom: this.headroom && {
+        time: this.headroom.time,
+        answers: this.headroom.powers_MW.map((power) => this.taken(power)),
+      },
       flow_kg_s: this.started ? 12.4 * sense : null,
       power_MW_el: this.started ? [-1.85, 0, 2.2][sense + 1]! : null,
     };
@@ -257,22 +279,26 @@ export class ScriptedPlant implements PlantService {
       return { time: this.time(), answer };
     }
     if (question.kind !== 'headroom') throw new RangeError(`not scripted: ${question.kind}`);
-    const answer = question.ask.powers_W.map((power_W): Headroom => {
-      const { hours, energy_MWh_el } = this.answer(power_W / 1e6);
-      const power_MW_el = power_W / 1e6;
-      return {
-        power_MW_el,
-        hours,
-        energy_MWh_el,
-        ends_by: 'hot_outlet',
-        derated_after_hours: null,
-        derated_to_MW_el: null,
-        refused: null,
-        limited_by: null,
-      };
-    });
+    const answer = question.ask.powers_W.map((power_W) => this.taken(power_W / 1e6));
     return { time: this.time(), answer };
   }
+
+  private taken(power_MW_el: number): Headroom {
+    const { hours, energy_MWh_el } = this.answer(power_MW_el);
+    return {
+      power_MW_el,
+      hours,
+      energy_MWh_el,
+      ends_by: 'hot_outlet',
+      derated_after_hours: null,
+      derated_to_MW_el: null,
+      refused: null,
+      limited_by: null,
+    };
+  }
+
+  /** Headroom as last worked out. */
+  headroom: { time: string; powers_MW: number[] } | null = null;
 
   /** Offer tables that were to be kept, and what the report of them says. */
   readonly kept: { summary: KeptOffers; answer: AnsweredOffers }[] = [];
@@ -417,7 +443,29 @@ export class ScriptedPlant implements PlantService {
   }
 
   /** Hours only in every fifth row, as the daemon works them out less often than it scans. */
-  history(_unit: string, from_ms: number, to_ms: number, points: number): HistoryPoint[] {
+  history(_unit: string, from_ms: number, to_ms: number, points: number): StoredHistory {
+    return { points: this.points(from_ms, to_ms, points), bucket_ms: this.bucket_ms };
+  }
+
+  /** Whether what is stored is told as thinned; the script thins nothing. */
+  bucket_ms: number | null = null;
+  /** What is stored of profiles and of indicators. */
+  readonly storedMoments: StoredMoment[] = [];
+  readonly storedWatch: WatchView[] = [];
+
+  momentAt(_unit: string, time_ms: number): StoredMoment | null {
+    return this.storedMoments.findLast((one) => Date.parse(one.profile.time) <= time_ms) ?? null;
+  }
+
+  moments(_unit: string, from_ms: number, to_ms: number, points: number): Spread<StoredMoment> {
+    return within(this.storedMoments, ({ profile }) => profile.time, from_ms, to_ms, points);
+  }
+
+  watchHistory(_unit: string, from_ms: number, to_ms: number, points: number): Spread<WatchView> {
+    return within(this.storedWatch, ({ time }) => time, from_ms, to_ms, points);
+  }
+
+  private points(from_ms: number, to_ms: number, points: number): HistoryPoint[] {
     const rows = Math.min(points, 300);
     return Array.from({ length: rows }, (_, i) => {
       const t = rows === 1 ? to_ms : from_ms + ((to_ms - from_ms) * i) / (rows - 1);

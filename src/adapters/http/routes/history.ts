@@ -28,9 +28,12 @@ export function spanOf(
   );
 }
 
+const EXTREME = /\.(min|max)$/;
+
+/** The series asked for, else all but extremes. */
 function chosenSeries(service: PlantService, now: UnitNow, asked: readonly string[] | undefined) {
   const known = service.historySeries(now.unit.id);
-  if (asked === undefined) return known;
+  if (asked === undefined) return known.filter((name) => !EXTREME.test(name));
   const unknown = asked.find((name) => !known.includes(name));
   if (unknown === undefined) return [...new Set(asked)];
   const expected = known.length > 0 ? `some of ${known.join(', ')}` : 'no series is stored yet';
@@ -42,6 +45,12 @@ function chosenSeries(service: PlantService, now: UnitNow, asked: readonly strin
   );
 }
 
+/** Series with their extremes after them, where they have any. */
+function withExtremes(series: readonly string[], known: readonly string[]): string[] {
+  const all = series.flatMap((name) => [name, `${name}.min`, `${name}.max`]);
+  return [...new Set(all)].filter((name) => known.includes(name));
+}
+
 /** GET /api/units/{unit}/history as JSON or CSV. */
 export const historyRoutes: Routes = (app, { service }) => {
   app.get(
@@ -51,8 +60,9 @@ export const historyRoutes: Routes = (app, { service }) => {
         operationId: 'history',
         summary: 'Stored series of a unit, thinned evenly to a number of points',
         description:
-          'Without from and to: the 24 h before the newest estimate. CSV by ?format=csv or ' +
-          'Accept: text/csv.',
+          'Without from and to: the 24 h before the newest estimate. Of more rows than points one ' +
+          'per stretch of equal length: the mean, with NAME.min and NAME.max; of words the last. CSV ' +
+          'by ?format=csv or Accept: text/csv.',
         tags: ['history'],
         params: unitParams,
         querystring: historyQuery,
@@ -74,9 +84,14 @@ export const historyRoutes: Routes = (app, { service }) => {
       const { format, points = POINTS, series: asked } = request.query;
       const { from, to } = spanOf(request.query, now.estimate?.time);
       const series = chosenSeries(service, now, asked);
-      const stored = service.history(unit, from, to, points);
-      const rows = stored.map((row): HistoryPoint => {
-        const values = series.map((name) => [name, row[name] ?? null] as const);
+      const names = series.map((name) => name.replace(EXTREME, ''));
+      const stored = service.history(unit, from, to, points, names);
+      const thinned = stored.bucket_ms !== null;
+      const columns = thinned ? withExtremes(series, service.historySeries(unit)) : series;
+      const rows = stored.points.map((row): HistoryPoint => {
+        // Of a single row the extremes are its value.
+        const own = (name: string) => row[thinned ? name : name.replace(EXTREME, '')] ?? null;
+        const values = columns.map((name) => [name, own(name)] as const);
         return { time: row.time, ...Object.fromEntries(values) };
       });
       reply.header('vary', 'Accept');
@@ -84,11 +99,12 @@ export const historyRoutes: Routes = (app, { service }) => {
         const name = unit.replace(/[^\w.-]+/g, '_');
         reply.header('content-disposition', `attachment; filename="${name}-history.csv"`);
         reply.type('text/csv; charset=utf-8; header=present');
-        return toCsv(['time', ...series], rows);
+        return toCsv(['time', ...columns], rows);
       }
       const at = (time_ms: number) => new Date(time_ms).toISOString();
       reply.type('application/json; charset=utf-8');
-      return { unit, from: at(from), to: at(to), series, rows };
+      const bucket_s = stored.bucket_ms === null ? null : stored.bucket_ms / 1000;
+      return { unit, from: at(from), to: at(to), thinned, bucket_s, series, rows };
     },
   );
 };

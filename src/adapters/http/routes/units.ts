@@ -1,19 +1,15 @@
 import type { z } from 'zod';
 import { limitedAnswers } from '../../../core/plan/limitedBy.js';
 import { HttpFault } from '../faults.js';
+import { glanceView } from '../glance.js';
 import { fullHead, requireEstimate } from '../planHead.js';
 import { faults, type Routes, unitOf } from '../routes.js';
-import {
-  unitHoursSchema,
-  unitListSchema,
-  unitNowSchema,
-  unitProfileSchema,
-} from '../schema/answers.js';
+import { unitHoursSchema, unitListSchema, unitNowSchema } from '../schema/answers.js';
 import { headroomQuery } from '../schema/plan.js';
 import { sensorsQuery, unitParams } from '../schema/questions.js';
 import { unitWorthSchema } from '../schema/worth.js';
 import type { PlantService, UnitNow } from '../service.js';
-import { ageOf, definitionView, noEstimate, profileView, stateView, worthView } from '../views.js';
+import { definitionView, noEstimate, stateView, worthView } from '../views.js';
 
 async function askHours(
   service: PlantService,
@@ -62,7 +58,7 @@ async function askSensors(service: PlantService, now: UnitNow, over: 'now' | 'da
   return worthView(worth, time);
 }
 
-/** GET /api/units, /api/units/{unit}, .../profile, .../hours, .../sensors */
+/** GET /api/units, /api/units/{unit}, .../hours, .../sensors */
 export const unitRoutes: Routes = (app, { service, tuning }) => {
   const tags = ['units'];
 
@@ -82,17 +78,7 @@ export const unitRoutes: Routes = (app, { service, tuning }) => {
       units: service.unitIds().flatMap((id) => {
         const now = service.now(id);
         if (now === undefined) return [];
-        const { estimate } = now;
-        return {
-          unit: id,
-          name: now.unit.name,
-          mode: estimate?.mode ?? null,
-          quality: estimate?.quality ?? null,
-          state_of_charge: estimate?.state_of_charge ?? null,
-          time: estimate?.time ?? null,
-          age_s: now.age_s,
-          stale: now.stale,
-        };
+        return [glanceView(now, service.standing(id), service.heldBack(id).length)];
       }),
     }),
   );
@@ -116,24 +102,6 @@ export const unitRoutes: Routes = (app, { service, tuning }) => {
       // Before the first estimate the limits are those of this moment.
       const at_ms = now.estimate === null ? Date.now() : Date.parse(now.estimate.time);
       return { ...stateView(now), definition: definitionView(now.unit, at_ms) };
-    },
-  );
-
-  app.get(
-    '/api/units/:unit/profile',
-    {
-      schema: {
-        operationId: 'profile',
-        summary: 'Temperatures along each store: estimate, sigma and readings',
-        tags,
-        params: unitParams,
-        response: { 200: unitProfileSchema.describe('The newest profile'), ...faults },
-      },
-    },
-    async (request) => {
-      const now = unitOf(service, request.params.unit);
-      if (now.profile === null) throw noEstimate(now.unit.id);
-      return { ...profileView(now.profile), age_s: ageOf(now, now.profile.time) };
     },
   );
 

@@ -2,15 +2,18 @@ import { z } from 'zod';
 import { cycleRows, cycleView } from '../../../core/watch/cycleView.js';
 import { toCsv, wantsCsv } from '../csv.js';
 import { faults, type Routes, unitOf } from '../routes.js';
+import { watchHistoryQuery, watchHistorySchema } from '../schema/playback.js';
 import { cyclesQuery, unitParams } from '../schema/questions.js';
 import { cyclesSchema, watchSchema } from '../schema/watch.js';
 import { ageOf, noEstimate } from '../views.js';
+import { watchColumns } from '../watchColumns.js';
 import { spanOf } from './history.js';
 
 const MONTH_MS = 30 * 86_400_000;
 const MOST = 500;
+const POINTS = 200;
 
-/** GET /api/units/{unit}/watch, .../cycles */
+/** GET /api/units/{unit}/watch, .../watch/history, .../cycles */
 export const watchRoutes: Routes = (app, { service }) => {
   const tags = ['watch'];
 
@@ -34,6 +37,36 @@ export const watchRoutes: Routes = (app, { service }) => {
         ...{ time, unit, age_s: ageOf(now, time), stale: now.stale },
         indicators: indicators.map((indicator) => ({ ...indicator })),
         causes: causes.map((cause) => ({ ...cause, evidence: [...cause.evidence] })),
+      };
+    },
+  );
+
+  app.get(
+    '/api/units/:unit/watch/history',
+    {
+      schema: {
+        operationId: 'watchHistory',
+        summary: 'What the indicators showed over a span of time, as columns',
+        description:
+          'Stored every 10 minutes of source time and at each change of a state. Of more than ' +
+          `\`points\` the last in each of so many equal stretches (${POINTS} unless asked otherwise). ` +
+          'Without from and to: the 30 days before the newest estimate.',
+        tags,
+        params: unitParams,
+        querystring: watchHistoryQuery,
+        response: { 200: watchHistorySchema.describe('Oldest first'), ...faults },
+      },
+    },
+    async (request) => {
+      const now = unitOf(service, request.params.unit);
+      const unit = now.unit.id;
+      const { points = POINTS, kinds } = request.query;
+      const { from, to } = spanOf(request.query, now.estimate?.time, MONTH_MS);
+      const { rows, thinned, every_ms } = service.watchHistory(unit, from, to, points);
+      return {
+        ...{ unit, from: new Date(from).toISOString(), to: new Date(to).toISOString() },
+        ...{ thinned, every_s: every_ms / 1000 },
+        ...watchColumns(rows, kinds),
       };
     },
   );
@@ -66,10 +99,11 @@ export const watchRoutes: Routes = (app, { service }) => {
     async (request, reply) => {
       const now = unitOf(service, request.params.unit);
       const unit = now.unit.id;
-      const { format, kind } = request.query;
+      const { format, kind, indicators } = request.query;
       const { from, to } = spanOf(request.query, now.estimate?.time, MONTH_MS);
       const found = service.cycles(unit, from, to, kind, MOST + 1);
-      const cycles = found.slice(-MOST).map(cycleView);
+      const runs = found.slice(-MOST).map(cycleView);
+      const cycles = indicators === 'no' ? runs.map((run) => ({ ...run, indicators: [] })) : runs;
       reply.header('vary', 'Accept');
       if (wantsCsv(format, request.headers.accept)) {
         const name = unit.replace(/[^\w.-]+/g, '_');

@@ -2,7 +2,13 @@ import { z } from 'zod';
 import { IMPLAUSIBLE_KINDS } from '../../../core/track/plausible.js';
 import { EVENT_KINDS } from '../../../core/watch/event.js';
 import { FAULT_CODES } from '../faults.js';
-import { dispatchSchema, estimateSchema, profileSchema, timeSchema } from './estimate.js';
+import {
+  dispatchAnswerSchema,
+  dispatchSchema,
+  estimateSchema,
+  profileSchema,
+  timeSchema,
+} from './estimate.js';
 import { limitsSchema } from './limits.js';
 import { answerHead } from './plan.js';
 
@@ -83,6 +89,14 @@ export const unitNowSchema = unitStateSchema.extend({
 });
 export const streamStateSchema = unitStateSchema.extend({ profile: profileSchema.nullable() });
 
+const firmSchema = z.object({
+  time: timeSchema.describe('Of the estimate that it stands on'),
+  power_MW: z.number().describe('Rated power where it is in hours_at, else the first there'),
+  hours: z.number().describe('p90: exceeded with 90 % probability'),
+  energy_MWh_el: z.number().describe('p90, at the connection point'),
+  limited_by: dispatchAnswerSchema.shape.limited_by,
+});
+
 export const unitListSchema = z.object({
   site: z.string(),
   version: z.string(),
@@ -96,6 +110,21 @@ export const unitListSchema = z.object({
       time: timeSchema.nullable(),
       age_s: z.number().nullable(),
       stale: z.boolean(),
+      flow_kg_s: z.number().nullable().describe('Positive while charging'),
+      power_MW_el: z
+        .number()
+        .nullable()
+        .describe('Net at the connection point, positive while charging'),
+      dispatchable: firmSchema.nullable().describe('What it can still give; null before the first'),
+      headroom: firmSchema
+        .nullable()
+        .describe('What it can still take; null where it was not computed in this process yet'),
+      alarms: z
+        .object({ high: z.number(), medium: z.number(), low: z.number() })
+        .describe('Shown alarms by priority'),
+      alerts: z.number().describe('Shown alerts'),
+      unacknowledged: z.number().describe('Shown alarms and alerts that nobody has acknowledged'),
+      held_back: z.number().describe('Shelved, suppressed by design or out of service'),
     }),
   ),
 });
@@ -105,13 +134,20 @@ export const unitHoursSchema = z.object({
   answers: dispatchSchema.shape.answers,
 });
 
-export const unitProfileSchema = profileSchema.extend({ age_s: z.number().nullable() });
-
 export const unitHistorySchema = z.object({
   unit: z.string(),
   from: timeSchema,
   to: timeSchema,
-  series: z.array(z.string()),
+  thinned: z.boolean().describe('A row per stretch of time: numbers as means, words as the last'),
+  bucket_s: z
+    .number()
+    .nullable()
+    .describe('Length of those stretches, cut at whole multiples of it; null: rows as stored'),
+  series: z
+    .array(z.string())
+    .describe(
+      'Of numbers thinned rows also have NAME.min and NAME.max: the extremes of all rows in it',
+    ),
   rows: z.array(z.record(z.string(), z.union([z.number(), z.string(), z.null()]))),
 });
 
@@ -126,6 +162,9 @@ export const eventFields = {
   value: z.number().nullable(),
   limit: z.number().nullable(),
   message: z.string(),
+  act_by: timeSchema
+    .optional()
+    .describe('Until when the operator can act; absent: not known, or nothing to do for him'),
 };
 
 export const watchEventSchema = z.object({
@@ -167,8 +206,10 @@ export const faultSchema = z.object({
   }),
 });
 
+export type { UnitProfileView } from './playback.js';
 export type UnitDefinitionView = UnitNowView['definition'];
 export type UnitStateView = z.output<typeof unitStateSchema>;
 export type UnitNowView = z.output<typeof unitNowSchema>;
 export type StreamStateView = z.output<typeof streamStateSchema>;
-export type UnitProfileView = z.output<typeof unitProfileSchema>;
+export type UnitListView = z.output<typeof unitListSchema>;
+export type UnitHistoryView = z.output<typeof unitHistorySchema>;

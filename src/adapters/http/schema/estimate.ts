@@ -103,7 +103,7 @@ export const estimateSchema = z.object({
   stores: z.record(z.string(), storeEstimateSchema),
 });
 
-const storeProfileSchema = z.object({
+export const storeProfileSchema = z.object({
   x_m: z.array(z.number()).describe('Cell centres, distance from the charge inlet [m]'),
   mean_degC: z.array(z.number()),
   tubes: z.array(

@@ -85,6 +85,10 @@ export const cyclesQuery = z.strictObject({
   from: instant.optional(),
   to: instant.optional(),
   kind: z.enum(['charge', 'stand', 'discharge'], { error: RUN }).describe(RUN).optional(),
+  indicators: z
+    .enum(['yes', 'no'], { error: 'yes or no' })
+    .describe('no leaves the indicators of each run empty (default: yes)')
+    .optional(),
   format: z
     .enum(['json', 'csv'], { error: 'json or csv' })
     .describe('json or csv; without it the Accept header decides')
