@@ -53,8 +53,8 @@ describe('a unit that heard nothing for long', () => {
   });
 
   it('forgets as well where the day passed in empty scans', () => {
-    // A day of scans, though not of so many.
-    const slow = { ...unit, scan_period_s: 300 };
+    // A day of scans, though not of so many: one comes empty, one does not come, in turn.
+    const slow = { ...unit, scan_period_s: 1800 };
     const state = startUnit(slow);
     advance(slow, state, scanAt(0, 0, 300), HOURS);
     const nothing = { hours_at_W: [], profile: false };

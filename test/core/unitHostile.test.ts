@@ -3,6 +3,7 @@ import { describe, expect, it } from 'vitest';
 import { advance, saveUnit, startUnit, type UnitAsk } from '../../src/core/unit.js';
 import { lookAt, sound } from '../../tools/score/soundState.js';
 import { mulberry } from '../support/random.js';
+import { runs } from '../support/runs.js';
 import { frontedScan } from './track/fronted.js';
 import { coldStore, hotStore, stringOf, unitOf } from './track/plants.js';
 
@@ -121,7 +122,7 @@ describe('hostile inputs', () => {
         fc.array(step, { minLength: 5, maxLength: 40 }),
         run,
       ),
-      { numRuns: 30, seed: 3 },
+      { numRuns: runs(12), seed: 3 },
     );
   });
 

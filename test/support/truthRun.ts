@@ -16,12 +16,19 @@ import { emptyScan, unitScan } from './unitScans.js';
 export const H = 3600;
 const PERIOD_S = 60;
 
-/** The unit of config/demo.yaml at scans of a minute. */
+let demo: UnitDefinition | undefined;
+
+/**
+ * The unit of config/demo.yaml at scans of a minute; the same one always, since the model that is
+ * built of a definition is remembered with it.
+ */
 export function demoUnit(): UnitDefinition {
+  if (demo !== undefined) return demo;
   const site = loadSite(new URL('../../config/demo.yaml', import.meta.url).pathname);
   const unit = site.units[0];
   if (unit === undefined) throw new Error('config/demo.yaml has no unit');
-  return { ...unit, scan_period_s: PERIOD_S };
+  demo = Object.freeze({ ...unit, scan_period_s: PERIOD_S });
+  return demo;
 }
 
 export interface Step {
