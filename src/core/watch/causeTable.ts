@@ -91,7 +91,8 @@ export const CAUSES: Readonly<Record<CauseKind, CauseNote>> = {
     prior: 0.15,
     shows: { front_travel: 0.95, pressure_drop: 0.3, energy_lost: 0.1 },
     other: { front_travel: 0.95, pressure_drop: 0.3 },
-    follows: ['energy_lost'],
+    // Where it is by as much as the travel says of the meter: see consequences.ts.
+    follows: ['energy_lost', 'pressure_drop'],
     words: 'the flow meter',
     check:
       'the zero of the flow meter, its impulse lines and its range; and rock that was exchanged',

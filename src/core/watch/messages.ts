@@ -65,6 +65,13 @@ export function sensorReturned(store: string, sensor: string): string {
   return `Thermocouple ${sensor} in store ${store} is used again.`;
 }
 
+export function sensorInGas(store: string, sensor: string): string {
+  return (
+    `Thermocouple ${sensor} in store ${store} is still left out, as it hangs in gas over the settled bed: the ` +
+    'alert of the bed stands for it.'
+  );
+}
+
 export function manySensorsRaised(store: string, count: number, all: number): string {
   return (
     `Store ${store}: ${count} of ${all} thermocouples are left out at once. So many point to one cause: ` +
@@ -179,6 +186,13 @@ export function indicatorRaised(view: IndicatorView, causes: readonly CauseView[
       ? ''
       : ` What follows from it has no alert of its own while this one stands: ${waiting.join(', ')}.`;
   return `${view.sentence} Probably ${CAUSES[cause.cause].words} (${sure}). On site: ${cause.check}.${follows}`;
+}
+
+export function indicatorWithdrawn(view: IndicatorView): string {
+  return (
+    `Withdrawn: it is off by what the travel of the fronts says of the flow meter, whose alert stands. ` +
+    view.sentence
+  );
 }
 
 export function indicatorReturned(view: IndicatorView): string {

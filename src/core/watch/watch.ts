@@ -11,7 +11,7 @@ import {
   startCondition,
   stepEvidence,
 } from './condition.js';
-import { isConsequence, MAY_FOLLOW } from './consequences.js';
+import { hangsInGas, isConsequence, MAY_FOLLOW, mayBeMeter } from './consequences.js';
 import type { EventKind, WatchEvent } from './event.js';
 import type { IndicatorView } from './indicator.js';
 import { INDICATORS_VERSION, type IndicatorStates } from './indicators.js';
@@ -58,6 +58,8 @@ const AT_ONCE = { on_delay_s: 0, off_delay_s: 0 };
 /** So many rejected sensors of one store are one event: this share of them, and at least so many. */
 const MANY_SHARE = 0.2;
 const MANY_LEAST = 4;
+/** Within this time a charge and a discharge tell a flow meter from dust, where the plant cycles. */
+const METER_WAIT_S = 86_400;
 /** A delay starts afresh after this many scan periods without a scan. */
 const GAP_SCANS = 5;
 
@@ -106,7 +108,7 @@ export function stepWatch(
   for (const store of unit.stores) {
     const estimate = input.estimate.stores[store.id];
     if (estimate === undefined) continue;
-    watchSensors(unit, state, store, estimate, step);
+    watchSensors(state, store, estimate, input.indicators ?? [], unit.watch.sensor_rejected, step);
   }
   watchOutlets(unit, input, step);
   watchGas(input, step);
@@ -145,16 +147,17 @@ function watchAge(unit: UnitDefinition, state: WatchState, input: WatchInput, st
 
 /**
  * One event per sensor; but where many of a store are rejected at once there is one common cause, and
- * one event for the store instead of a flood (ISA-18.2): those not told of yet wait until it is over.
+ * one event for the store instead of a flood (ISA-18.2): those not told of yet wait until it is over. Those
+ * that hang in gas over a settled bed wait for its alert, and are withdrawn once it stands.
  */
 function watchSensors(
-  unit: UnitDefinition,
   state: WatchState,
   store: StoreDefinition,
   estimate: StoreEstimate,
+  views: readonly IndicatorView[],
+  rule: UnitDefinition['watch']['sensor_rejected'],
   step: Step,
 ): void {
-  const rule = unit.watch.sensor_rejected;
   const ids = store.strings.flatMap((string) => string.thermocouples.map(({ id }) => id));
   const { rejected } = estimate.sensors;
   const many = Math.max(MANY_LEAST, MANY_SHARE * ids.length);
@@ -169,11 +172,15 @@ function watchSensors(
     const known = state.conditions[`sensor_rejected/${id}`];
     const sensor = rejected.find((one) => one.id === id);
     if (sensor === undefined && known === undefined) continue;
+    const inGas = sensor !== undefined && hangsInGas(store, id, sensor.verdict, views);
+    const waits = (flood || inGas) && !known?.raised;
+    const isTold = inGas && (state.conditions[`bed_settled/${store.id}`]?.raised ?? false);
     const evidence =
-      sensor === undefined ? 'clear' : flood && !known?.raised ? 'unknown' : 'active';
-    step('sensor_rejected', id, evidence, rule, null, null, () =>
-      sensor ? say.sensorRaised(store.id, sensor) : say.sensorReturned(store.id, id),
-    );
+      sensor === undefined || (isTold && !waits) ? 'clear' : waits ? 'unknown' : 'active';
+    step('sensor_rejected', id, evidence, isTold ? AT_ONCE : rule, null, null, (raised) => {
+      if (sensor === undefined) return say.sensorReturned(store.id, id);
+      return raised ? say.sensorRaised(store.id, sensor) : say.sensorInGas(store.id, id);
+    });
   }
 }
 
@@ -189,7 +196,8 @@ function watchGas({ gas = [] }: WatchInput, step: Step): void {
 
 /**
  * What has been decided is active or clear; what is not known neither raises nor returns. What only
- * follows from a cause whose alert stands waits: it is looked at after those.
+ * follows from a cause whose alert stands waits: it is looked at after those. Pressure drops that a meter
+ * may be behind wait for what tells it, a day at most; one told before is withdrawn, as it named a bed.
  */
 function watchIndicators(
   { conditions }: WatchState,
@@ -203,15 +211,25 @@ function watchIndicators(
     const kind = INDICATOR_EVENTS[view.kind];
     if (kind === undefined) continue;
     const { subject, state, value, limit } = view;
-    const waits =
-      state === 'degraded' &&
-      !isRaised(conditions, view) &&
-      isConsequence(view, indicators, causes, stands);
+    const isTold = isRaised(conditions, view);
+    const isBad = state === 'degraded';
+    const waits = isBad && !isTold && isConsequence(view, indicators, causes, stands);
+    const isWithdrawn =
+      isBad &&
+      isTold &&
+      view.kind === 'pressure_drop' &&
+      isConsequence(view, indicators, causes, (other) => isRaised(conditions, other));
     const evidence =
-      waits || state === 'undetermined' ? 'unknown' : state === 'degraded' ? 'active' : 'clear';
-    step(kind, subject, evidence, view, value, limit, (raised) =>
-      raised ? say.indicatorRaised(view, causes) : say.indicatorReturned(view),
-    );
+      waits || state === 'undetermined' ? 'unknown' : isBad && !isWithdrawn ? 'active' : 'clear';
+    const delays = isWithdrawn
+      ? AT_ONCE
+      : mayBeMeter(view, indicators)
+        ? { ...view, on_delay_s: METER_WAIT_S }
+        : view;
+    step(kind, subject, evidence, delays, value, limit, (raised) => {
+      if (isWithdrawn) return say.indicatorWithdrawn(view);
+      return raised ? say.indicatorRaised(view, causes) : say.indicatorReturned(view);
+    });
   }
 }
 
