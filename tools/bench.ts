@@ -1,7 +1,7 @@
 /**
- * npm run bench: what a scan, answers and a week cost on this machine. Ratios are taken within one
- * run; absolute times are of this machine at this moment. The week's recording is made once and kept
- * in .bench, so a run that was stopped goes on from there.
+ * npm run bench: what a scan, answers, the page and a week cost on this machine. Ratios are taken
+ * within one run; absolute times are of this machine at this moment. The week's recording is made
+ * once and kept in .bench, so a run that was stopped goes on from there.
  */
 import { execFileSync } from 'node:child_process';
 import { existsSync, mkdirSync, renameSync, rmSync } from 'node:fs';
@@ -19,6 +19,7 @@ import { unitModel } from '../src/core/unitModel.js';
 import { createDemoPlant } from '../src/plant/demoPlant.js';
 import { benchAhead } from './bench/ahead.js';
 import { benchAsking } from './bench/asking.js';
+import { benchPage } from './bench/page.js';
 import { helpIfAsked } from './help.js';
 
 helpIfAsked(import.meta.url);
@@ -191,4 +192,5 @@ benchKernel(unit);
 await benchScans(unit, week);
 await benchAhead(unit, week, line);
 await benchAsking(`${root}config/demo.yaml`, line);
+await benchPage(`${root}config/demo.yaml`, line);
 await benchWeek(unit, week);

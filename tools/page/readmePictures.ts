@@ -1,0 +1,33 @@
+import type { Page } from 'playwright-core';
+
+export interface Picture {
+  readonly path: string;
+  readonly file: string;
+  readonly width: number;
+  readonly height: number;
+  readonly dark: boolean;
+}
+
+/** The pictures of README.md. */
+export const PICTURES: readonly Picture[] = [
+  { path: 'now', file: 'now.webp', width: 1280, height: 800, dark: false },
+  { path: 'rock/playback', file: 'rock.webp', width: 1280, height: 800, dark: false },
+  { path: 'offer/table', file: 'offer.webp', width: 1280, height: 800, dark: true },
+  { path: 'now', file: 'phone.webp', width: 390, height: 844, dark: true },
+];
+
+const MOST_BYTES = 60_000;
+
+/** What is in view as WebP, as fine as fits into 60 kB. */
+export async function smallPicture(page: Page): Promise<Buffer> {
+  const session = await page.context().newCDPSession(page);
+  try {
+    for (let quality = 80; ; quality -= 10) {
+      const { data } = await session.send('Page.captureScreenshot', { format: 'webp', quality });
+      const picture = Buffer.from(data, 'base64');
+      if (picture.length <= MOST_BYTES || quality <= 10) return picture;
+    }
+  } finally {
+    await session.detach();
+  }
+}
