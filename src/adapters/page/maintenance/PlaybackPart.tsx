@@ -1,0 +1,186 @@
+import { useEffect, useMemo, useState } from 'preact/hooks';
+import { api, model } from '../lib/page.js';
+import { hrefOf, route } from '../lib/route.js';
+import { useAnswer } from '../lib/useAnswer.js';
+import type { StoreDefinition } from '../lib/wire.js';
+import { Choices } from '../parts/Choices.js';
+import { useSettled } from '../parts/useSettled.js';
+import { FrontMap } from './FrontMap.js';
+import { drawable, nearest, secondsOf } from './moments.js';
+import { PastBeds } from './PastBeds.js';
+import { Player } from './Player.js';
+import type { PastProfile, Playback } from './wire.js';
+
+const HOUR_MS = 3_600_000;
+const POINTS = 144;
+const SETTLE_MS = 400;
+const SPANS = [
+  { value: '24', label: '24 h' },
+  { value: '72', label: '3 days' },
+  { value: '168', label: '7 days' },
+  { value: '720', label: '30 days' },
+];
+
+/** The span looked at: its length, and its end; null ends with the newest estimate. */
+interface Span {
+  readonly hours: string;
+  readonly end_ms: number | null;
+}
+
+/** The moment that the address asks for, `#rock/playback/TIME`. */
+function asked(): number | null {
+  const at = Date.parse(route.value.part.split('/').slice(1).join('/'));
+  return Number.isFinite(at) ? at : null;
+}
+
+const newest_ms = () => {
+  const time = model.unit.peek()?.state?.estimate?.time;
+  return time === undefined ? null : Date.parse(time);
+};
+
+/** A span around a moment that does not reach beyond the newest estimate. */
+function around(at_ms: number, hours: string): Span {
+  const end_ms = at_ms + (Number(hours) / 2) * HOUR_MS;
+  return { hours, end_ms: end_ms >= (newest_ms() ?? 0) ? null : end_ms };
+}
+
+/** The beds as they were: a slider over the stored profiles. */
+export function PlaybackPart({
+  unit,
+  stores,
+}: {
+  unit: string;
+  stores: readonly StoreDefinition[];
+}) {
+  const wanted = asked();
+  const [span, setSpan] = useState<Span>(() =>
+    wanted === null ? { hours: '24', end_ms: null } : around(wanted, '24'),
+  );
+  const [chosen_s, setChosen] = useState<number | null>(wanted === null ? null : wanted / 1000);
+  // Each time the span is set anew, "newest" is another time.
+  const [tries, setTries] = useState(0);
+  const look = (next: Span, at_ms: number | null) => {
+    setSpan(next);
+    setChosen(at_ms === null ? null : at_ms / 1000);
+    setTries((before) => before + 1);
+  };
+  useEffect(() => {
+    if (wanted !== null) look(around(wanted, span.hours), wanted);
+  }, [wanted]);
+
+  const started = model.unit.value?.state?.estimate != null;
+  const key = started ? `${unit} ${span.hours} ${span.end_ms} ${tries}` : null;
+  const { answer, fault, asking } = useAnswer(key, (signal) => {
+    const end_ms = span.end_ms ?? newest_ms() ?? Date.now();
+    const query = {
+      from: new Date(end_ms - Number(span.hours) * HOUR_MS).toISOString(),
+      to: new Date(end_ms).toISOString(),
+      ...{ points: POINTS, sigma: 'no' },
+    };
+    return api.get<Playback>(api.path(unit, 'profiles'), query, signal);
+  });
+  return (
+    <>
+      <div class="rock-asks">
+        <Choices
+          legend="Span"
+          name="playback-span"
+          options={SPANS}
+          chosen={span.hours}
+          onChoose={(hours) =>
+            look(
+              chosen_s === null ? { hours, end_ms: null } : around(chosen_s * 1000, hours),
+              chosen_s === null ? null : chosen_s * 1000,
+            )
+          }
+        />
+        <GoTo onGo={(at_ms) => look(around(at_ms, span.hours), at_ms)} />
+        <button type="button" onClick={() => look({ ...span, end_ms: null }, null)}>
+          To the newest
+        </button>
+      </div>
+      {fault !== null && <p class="fault">{fault}</p>}
+      {answer === null && fault === null && (
+        <p>{asking ? 'Asking for the profiles.' : 'No estimate of this unit yet.'}</p>
+      )}
+      {answer !== null && answer.profiles.length === 0 && (
+        <p>Nothing was stored in this span. Profiles are kept as long as estimates are.</p>
+      )}
+      {answer !== null && answer.profiles.length > 0 && (
+        <Played
+          unit={unit}
+          stores={stores}
+          playback={answer}
+          at_s={chosen_s ?? secondsOf(answer.profiles.at(-1)!)}
+          onChoose={setChosen}
+        />
+      )}
+    </>
+  );
+}
+
+function Played({
+  unit,
+  stores,
+  playback,
+  at_s,
+  onChoose,
+}: {
+  unit: string;
+  stores: readonly StoreDefinition[];
+  playback: Playback;
+  at_s: number;
+  onChoose(at_s: number): void;
+}) {
+  const { profiles, every_s } = playback;
+  const moment = nearest(profiles, at_s, every_s);
+  const time = useSettled(moment?.time ?? null, SETTLE_MS);
+  // At rest the moment is asked for once more, with its sigmas.
+  const { answer } = useAnswer(time === null ? null : `${unit} ${time}`, (signal) =>
+    api.get<PastProfile>(api.path(unit, 'profile'), { time }, signal),
+  );
+  useEffect(() => {
+    if (time === null) return;
+    history.replaceState(null, '', `${location.search}${hrefOf('rock', `playback/${time}`)}`);
+  }, [time]);
+  const shown = useMemo(() => {
+    if (moment === null) return null;
+    const whole = answer?.time === moment.time ? answer : null;
+    const of = (store: string) => {
+      const own = whole?.stores[store] ?? moment.stores[store];
+      return own === undefined ? null : drawable(own);
+    };
+    return { ...moment, stores: Object.fromEntries(stores.map(({ id }) => [id, of(id)])) };
+  }, [moment, answer, stores]);
+  return (
+    <>
+      <FrontMap playback={playback} stores={stores} at_s={at_s} onChoose={onChoose} />
+      <Player playback={playback} at_s={at_s} moment={moment} onChoose={onChoose} />
+      <PastBeds stores={stores} moment={shown} />
+    </>
+  );
+}
+
+function GoTo({ onGo }: { onGo(at_ms: number): void }) {
+  const [text, setText] = useState('');
+  return (
+    <form
+      class="rock-go"
+      onSubmit={(event) => {
+        event.preventDefault();
+        const at_ms = new Date(text).getTime();
+        if (Number.isFinite(at_ms)) onGo(at_ms);
+      }}
+    >
+      <label for="playback-date">Date and time</label>
+      <input
+        id="playback-date"
+        type="datetime-local"
+        required
+        value={text}
+        onInput={(event) => setText(event.currentTarget.value)}
+      />
+      <button type="submit">Go there</button>
+    </form>
+  );
+}
