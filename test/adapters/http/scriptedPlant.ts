@@ -41,6 +41,7 @@ import type { UnitWorth } from '../../../src/core/worth/unitWorth.js';
 import { COLD, HOT, unitOf } from './scriptedDefinitions.js';
 import { scriptedOffers } from './scriptedOffers.js';
 import { scriptedSchedule } from './scriptedSchedule.js';
+import { marchedSchedule, scriptedCapability } from './scriptedTrade.js';
 
 const START_MS = Date.UTC(2026, 0, 31, 6);
 
@@ -262,6 +263,10 @@ export class ScriptedPlant implements PlantService {
   }
 
   failPlan: Error | null = null;
+  /** A schedule follows from the charge instead of being short by a tenth, whatever is asked. */
+  marches = false;
+  /** Delay of each answer about what lies ahead [ms]. */
+  planTakes_ms = 0;
   /** Questions about what lies ahead, as they came. */
   readonly planAsked: PlanQuestion[] = [];
 
@@ -269,14 +274,22 @@ export class ScriptedPlant implements PlantService {
     if (this.failPlan !== null) throw this.failPlan;
     if (this.now(unit) === undefined) throw new RangeError(`unit: ${unit}`);
     this.planAsked.push(question);
+    if (this.planTakes_ms > 0) await new Promise((done) => setTimeout(done, this.planTakes_ms));
     if (question.kind === 'offers') {
       const charge_MWh = this.moment.charged * 16;
       const answer = scriptedOffers(question.ask, Date.parse(this.time()), charge_MWh);
       return { time: this.time(), answer };
     }
     if (question.kind === 'schedule') {
-      const answer = scriptedSchedule(question.ask, Date.parse(this.time()));
+      const now_ms = Date.parse(this.time());
+      const answer = this.marches
+        ? marchedSchedule(question.ask, now_ms, this.moment.charged)
+        : scriptedSchedule(question.ask, now_ms);
       return { time: this.time(), answer };
+    }
+    if (question.kind === 'capability') {
+      const { unit: definition } = this.now(unit)!;
+      return { time: this.time(), answer: scriptedCapability(definition, this.moment.charged) };
     }
     if (question.kind !== 'headroom') throw new RangeError(`not scripted: ${question.kind}`);
     const answer = question.ask.powers_W.map((power_W) => this.taken(power_W / 1e6));

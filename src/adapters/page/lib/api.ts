@@ -7,11 +7,20 @@ import type {
   UnitState,
 } from './wire.js';
 
+/** One thing that was wrong with a question. */
+export interface AnswerFault {
+  readonly field: string;
+  readonly value: unknown;
+  readonly expected: string;
+}
+
 /** What the server said was wrong, in its own words. */
 export class AnswerError extends Error {
   constructor(
     message: string,
     readonly status: number | null,
+    /** What of the question was wrong, as far as the server says it field by field. */
+    readonly faults: readonly AnswerFault[] = [],
   ) {
     super(message);
     this.name = 'AnswerError';
@@ -25,6 +34,8 @@ export const wordsOf = (error: unknown): string =>
 export type Query = Readonly<Record<string, string | number | boolean | null | undefined>>;
 
 const LIMIT_MS = 15_000;
+/** What lies ahead takes seconds to work out, behind what others asked. */
+const LONG_LIMIT_MS = 120_000;
 
 /** All questions to the server; `base` is the folder of the page, so any path prefix holds. */
 export class Api {
@@ -88,10 +99,23 @@ export class Api {
     );
   }
 
-  private async ask<T>(url: string, init: RequestInit, ended?: AbortSignal): Promise<T> {
+  /** As `get`, for an answer that is worked out first; and as `post`, with a body. */
+  ahead<T>(path: string, question: { query?: Query; body?: unknown }, signal: AbortSignal) {
+    const { query, body } = question;
+    const headers = { 'content-type': 'application/json' };
+    const init = body === undefined ? {} : { method: 'POST', headers, body: JSON.stringify(body) };
+    return this.ask<T>(this.href(path, query), init, signal, LONG_LIMIT_MS);
+  }
+
+  private async ask<T>(
+    url: string,
+    init: RequestInit,
+    ended?: AbortSignal,
+    limit_ms = LIMIT_MS,
+  ): Promise<T> {
     let answer: Response;
     try {
-      const limit = AbortSignal.timeout(LIMIT_MS);
+      const limit = AbortSignal.timeout(limit_ms);
       answer = await fetch(url, {
         ...init,
         signal: ended === undefined ? limit : AbortSignal.any([limit, ended]),
@@ -101,10 +125,13 @@ export class Api {
     }
     const body = await answer.json().catch(() => null);
     if (answer.ok && body !== null) return body as T;
-    const message = body?.error?.message;
+    const error = body?.error;
     throw new AnswerError(
-      typeof message === 'string' ? message : `The server answered with status ${answer.status}.`,
+      typeof error?.message === 'string'
+        ? error.message
+        : `The server answered with status ${answer.status}.`,
       answer.status,
+      typeof error?.field === 'string' ? [error, ...(error.others ?? [])] : [],
     );
   }
 }

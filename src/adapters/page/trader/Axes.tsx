@@ -1,0 +1,71 @@
+import type { Frame, Scale } from './picture.js';
+
+/** Marks and words at the left and below; `[value, label]`. */
+export function Axes({
+  frame,
+  x,
+  y,
+  across,
+  up,
+  acrossName,
+  upName,
+}: {
+  frame: Frame;
+  x: Scale;
+  y: Scale;
+  across: readonly (readonly [number, string])[];
+  up: readonly (readonly [number, string])[];
+  acrossName?: string | undefined;
+  upName?: string | undefined;
+}) {
+  const { left, top, width, height } = frame;
+  const right = width - frame.right;
+  const bottom = height - frame.bottom;
+  return (
+    <g class="axes">
+      {up.map(([value, label]) => (
+        <g key={value}>
+          <line class="rule" x1={left} x2={right} y1={y(value)} y2={y(value)} />
+          <text x={left - 6} y={y(value)} dy="0.35em" text-anchor="end">
+            {label}
+          </text>
+        </g>
+      ))}
+      {across.map(([value, label]) => (
+        <g key={value}>
+          <line class="mark" x1={x(value)} x2={x(value)} y1={bottom} y2={bottom + 4} />
+          <text x={x(value)} y={bottom + 17} text-anchor="middle">
+            {label}
+          </text>
+        </g>
+      ))}
+      {upName !== undefined && (
+        <text class="name" x={0} y={top - 8}>
+          {upName}
+        </text>
+      )}
+      {acrossName !== undefined && (
+        <text class="name" x={right} y={bottom + 33} text-anchor="end">
+          {acrossName}
+        </text>
+      )}
+    </g>
+  );
+}
+
+/** The hatch of what is missing; its lines take the colour of who uses it. */
+export function Hatch({ id }: { id: string }) {
+  return (
+    <defs>
+      <pattern
+        id={id}
+        width="6"
+        height="6"
+        patternUnits="userSpaceOnUse"
+        patternTransform="rotate(45)"
+      >
+        <line class="hatch" x1="0" y1="0" x2="0" y2="6" />
+      </pattern>
+    </defs>
+  );
+}

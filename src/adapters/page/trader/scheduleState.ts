@@ -1,0 +1,37 @@
+import { signal } from '@preact/signals';
+import { api } from '../lib/page.js';
+import { Asking } from './asking.js';
+import type { TypedBlock } from './scheduleText.js';
+import type { ScheduleCheck } from './wire.js';
+
+/** What stands in the field; it stays while other parts are looked at. */
+export const scheduleText = signal('');
+export const scheduleCertainty = signal(0.9);
+
+/** An answer, with the text and the rows that it is of. */
+export interface Checked extends ScheduleCheck {
+  readonly text: string;
+}
+
+export const scheduleAsking = new Asking<Checked>();
+/** Lines of the rows that were last asked about, for faults of the server. */
+export const askedLines = signal<readonly number[]>([]);
+
+/** Holds a schedule against the unit. Local times are the connection's; without one, UTC. */
+export function checkSchedule(
+  { unit, zone }: { unit: string; zone: string | null },
+  blocks: readonly TypedBlock[],
+  text: string,
+): void {
+  askedLines.value = blocks.map(({ line }) => line);
+  const body = {
+    blocks: blocks.map(({ mode, power_MW_el, from, to }) => ({ mode, power_MW_el, from, to })),
+    certainty: scheduleCertainty.value,
+    zone: zone ?? 'UTC',
+    stale: 'mark',
+  };
+  void scheduleAsking.ask(unit, async (ended) => {
+    const check = await api.ahead<ScheduleCheck>(api.path(unit, 'schedule'), { body }, ended);
+    return { ...check, text };
+  });
+}
