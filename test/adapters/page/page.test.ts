@@ -85,7 +85,7 @@ describe.skipIf(!chromium)('the page, in a real browser', { timeout: 30_000 }, (
     const { page } = await open();
     await page.waitForSelector('#hours li');
     const answers = plant.now('north')!.dispatch!.answers;
-    expect(await page.locator('.hours:not(.asked) li').count()).toBe(answers.length);
+    expect(await page.locator('.hours.configured li').count()).toBe(answers.length);
     for (const answer of answers) {
       const row = `[data-power="${answer.power_MW}"]`;
       for (const level of ['p90', 'p50', 'p10'] as const) {
@@ -266,13 +266,13 @@ describe.skipIf(!chromium)('the page, in a real browser', { timeout: 30_000 }, (
     expect(await page.title()).toMatch(/^\(2\) /);
 
     const first = page.locator('.events li').first();
-    await first.locator('button').click();
+    await first.locator('[data-action="acknowledge"]').click();
     expect(await page.locator('#alarms .fault').textContent()).toContain('who acknowledges');
     expect(await page.evaluate(() => document.activeElement?.id)).toBe('who');
     expect(plant.acknowledged).toEqual([]);
 
     await page.keyboard.type('night shift');
-    await first.locator('button').click();
+    await first.locator('[data-action="acknowledge"]').click();
     await page.waitForSelector('.events li[data-state="acknowledged"]');
     expect(plant.acknowledged).toEqual([{ id: 'south/outlet_near_limit/hot', who: 'night shift' }]);
     expect(await page.locator('.events li[data-state="acknowledged"]').textContent()).toContain(
@@ -293,7 +293,7 @@ describe.skipIf(!chromium)('the page, in a real browser', { timeout: 30_000 }, (
     await page.waitForSelector('.held-back li', { state: 'attached' });
     expect(await page.locator(`.events li[data-id="${id}"]`).count()).toBe(0);
     expect(await page.locator('.held-back summary').textContent()).toBe('1 held back');
-    expect(await page.locator('.held-back li').textContent()).toMatch(
+    expect(await page.locator('.held-back li p').first().textContent()).toMatch(
       /^valve leaks · North unit · cold: shelved by day shift until .*: seat being lapped$/,
     );
     plant.commandAlarm({ id, action: 'unshelve', who: 'day shift' });

@@ -9,13 +9,16 @@ import type {
   unitHoursSchema,
   unitListSchema,
 } from '../../../src/adapters/http/schema/answers.js';
+import type { headroomSchema } from '../../../src/adapters/http/schema/plan.js';
 import type {
   AlarmLists,
+  AskedHeadroom,
   AskedHours,
   History,
   Profile,
   Standing,
   StreamState,
+  Told,
   UnitDefinition,
   UnitList,
 } from '../../../src/adapters/page/lib/wire.js';
@@ -31,12 +34,10 @@ export type Contract = [
   Sends<UnitNowView['definition'], UnitDefinition>,
   Sends<UnitProfileView, Profile>,
   Sends<z.output<typeof unitHoursSchema>, AskedHours>,
+  Sends<z.output<typeof headroomSchema>, AskedHeadroom>,
   Sends<z.output<typeof unitListSchema>, UnitList>,
   Sends<z.output<typeof unitHistorySchema>, History>,
   Sends<z.output<typeof alarmEntrySchema>, Standing>,
   Sends<z.output<typeof alarmsSchema>, AlarmLists>,
-  Sends<
-    z.output<typeof eventsSchema>['events'][number],
-    Omit<Standing, 'state' | 'acknowledged_by' | 'shelved' | 'out_of_service'>
-  >,
+  Sends<z.output<typeof eventsSchema>['events'][number], Told>,
 ];

@@ -108,7 +108,12 @@ export function Bed({
     if (svg.current === null || width === 0) return;
     drawing.current = new BedDrawing(svg.current, store, all, { width, bedHeight, beside });
   }, [store, all, width, bedHeight, beside]);
-  useLayoutEffect(() => drawing.current?.update(drawn, chosen));
+  // Only what moves the drawing: ages and beats of other units draw nothing here.
+  const { mode, own, profile } = drawn;
+  useLayoutEffect(
+    () => drawing.current?.update({ mode, own, profile }, chosen),
+    [store, all, width, bedHeight, beside, mode, own, profile, chosen],
+  );
   return (
     <svg
       ref={svg}

@@ -4,8 +4,11 @@ export interface LiveHandlers {
   /** Opened, with the server's greeting. */
   hello(hello: Hello): void;
   state(state: StreamState): void;
-  /** An alarm or alert was raised, returned or acknowledged. */
-  alarms(): void;
+  /**
+   * An alarm or alert was raised, returned or acknowledged.
+   * @param leftOut how many events of a storm were not sent one by one
+   */
+  alarms(leftOut: number): void;
   beat(beat: Beat): void;
   lost(): void;
 }
@@ -64,8 +67,8 @@ export class LiveConnection {
       this.handlers.hello(hello);
     });
     on('state', (state: StreamState) => this.handlers.state(state));
-    on('event', () => this.handlers.alarms());
-    on('alarms', () => this.handlers.alarms());
+    on('event', () => this.handlers.alarms(0));
+    on('alarms', (news: { left_out?: number }) => this.handlers.alarms(news.left_out ?? 0));
     on('beat', (beat: Beat) => this.handlers.beat(beat));
     source.onerror = () => {
       if (source === this.source) this.lose();

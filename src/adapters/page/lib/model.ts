@@ -30,6 +30,8 @@ export class PageModel {
   readonly standing = signal<readonly Standing[]>([]);
   /** Shelved, suppressed by design or out of service. */
   readonly heldBack = signal<readonly Standing[]>([]);
+  /** Events of a storm that were not sent one by one, and when the last of them came [wall clock]. */
+  readonly storm = signal<{ readonly count: number; readonly last_ms: number } | null>(null);
   /** Goes on once a second, for ages that grow by themselves [ms of performance.now()]. */
   readonly tick_ms = signal(performance.now());
   /** Counts what was told about alarms: lists that are asked for are asked for again. */
@@ -59,6 +61,11 @@ export class PageModel {
       });
       if (this.unit.value === null) this.selected.value = this.units.value[0]?.unit ?? null;
     });
+  }
+
+  takeStorm(leftOut: number): void {
+    const count = (this.storm.value?.count ?? 0) + leftOut;
+    this.storm.value = { count, last_ms: Date.now() };
   }
 
   takeDefinition(unit: string, definition: UnitDefinition | null): void {

@@ -45,7 +45,10 @@ const live = new LiveConnection((profileOf, id) => api.streamUrl(profileOf, id),
     void reloadAlarms();
   },
   state: (state) => model.takeState(state),
-  alarms: () => void reloadAlarms(),
+  alarms: (leftOut) => {
+    if (leftOut > 0) model.takeStorm(leftOut);
+    void reloadAlarms();
+  },
   beat: (beat) => model.takeBeat(beat),
   lost: () => model.setConnection('lost'),
 });

@@ -8,6 +8,7 @@ import type {
   TubeProfile,
 } from '../../../core/estimate.js';
 import type { LimitedAnswer } from '../../../core/plan/limitedBy.js';
+import type { AlarmText } from '../../../core/watch/alarmTexts.js';
 import type { WatchEvent } from '../../../core/watch/event.js';
 
 /** What the server sends, as far as the page reads it; a test holds it against the server's types. */
@@ -36,6 +37,7 @@ export interface UnitDefinition {
   rated_hours: number;
   hours_at_MW_el: number[];
   stores: StoreDefinition[];
+  limits: { charge: { power_max_MW_el: number } };
 }
 
 export type StoreState = Omit<StoreEstimate, 'outlet_K'> & { outlet_degC: number | null };
@@ -52,7 +54,26 @@ export interface Dispatch {
 
 /** Hours that were asked for: from a stale estimate too, and then marked. */
 export interface AskedHours extends Dispatch {
+  unit: string;
   stale: boolean;
+}
+
+/** What a unit can still take at a power, from now on. */
+export interface HeadroomAnswer {
+  power_MW_el: number;
+  hours: DispatchAnswer['hours'];
+  energy_MWh_el: DispatchAnswer['energy_MWh_el'];
+  ends_by: DispatchAnswer['ends_by'] | null;
+  refused: string | null;
+  limited_by: LimitedAnswer['limited_by'];
+}
+
+export interface AskedHeadroom {
+  unit: string;
+  time: string;
+  age_s: number | null;
+  stale: boolean;
+  answers: HeadroomAnswer[];
 }
 
 export type Reading = Omit<SensorReading, 'value_K'> & { value_degC: number | null };
@@ -96,12 +117,18 @@ export interface UnitList {
   units: UnitSummary[];
 }
 
-export type Standing = Omit<WatchEvent, 'transition'> & {
-  state: AlarmStateName;
-  acknowledged_by: string | null;
-  shelved: { by: string; why: string; until: string } | null;
-  out_of_service: { by: string; why: string } | null;
-};
+/** What is told of an event, whatever has become of it. */
+export type Told = Omit<WatchEvent, 'transition'>;
+
+export type Standing = Told &
+  AlarmText & {
+    state: AlarmStateName;
+    /** The condition stands, be it shown or held back. */
+    active: boolean;
+    acknowledged_by: string | null;
+    shelved: { by: string; why: string; until: string } | null;
+    out_of_service: { by: string; why: string } | null;
+  };
 
 /** What is shown and what is held back. */
 export interface AlarmLists {

@@ -1,33 +1,44 @@
-import { Bed, MEAN } from '../drawing/Bed.js';
 import { Beds } from '../drawing/Beds.js';
+import type { UnitEntry } from '../lib/model.js';
 import { model } from '../lib/page.js';
+import { Alarms } from './alarms/Alarms.js';
+import { useHeadroom, usePresentHours } from './asked.js';
+import { Figures } from './Figures.js';
+import { HistoryCharts } from './HistoryCharts.js';
+import { Hours } from './Hours.js';
+import { Legend } from './Legend.js';
+import { StoreView } from './StoreView.js';
 
-/** What the operator looks at. */
+/** Is all well, and how long still? */
 export function OperatorSheet() {
   const entry = model.unit.value;
-  const stores = entry?.definition?.stores ?? [];
-  const estimate = entry?.state?.estimate ?? null;
+  const present = usePresentHours(entry);
+  const headroom = useHeadroom(entry);
+  const key = entry?.unit ?? '';
   return (
-    <section id="stores" aria-label="Stores">
+    <>
+      <Figures entry={entry} present={present} headroom={headroom} />
+      <Alarms />
+      <Hours key={`hours ${key}`} entry={entry} present={present} />
+      {entry !== null && <Stores entry={entry} />}
+      {entry !== null && <HistoryCharts key={`history ${key}`} entry={entry} />}
+    </>
+  );
+}
+
+function Stores({ entry }: { entry: UnitEntry }) {
+  const stores = entry.definition?.stores ?? [];
+  return (
+    <section id="stores" aria-labelledby="stores-head" tabIndex={-1}>
+      <h2 id="stores-head">Stores</h2>
       <Beds
         stores={stores}
         bedHeight={370}
         each={(store, space) => (
-          <article key={store.id} class="store" data-store={store.id}>
-            <Bed
-              store={store}
-              all={stores}
-              space={space}
-              drawn={{
-                mode: estimate?.mode ?? null,
-                own: estimate?.stores[store.id] ?? null,
-                profile: entry?.state?.profile?.stores[store.id] ?? null,
-              }}
-              chosen={MEAN}
-            />
-          </article>
+          <StoreView key={store.id} entry={entry} store={store} all={stores} space={space} />
         )}
       />
+      <Legend />
     </section>
   );
 }
