@@ -15,7 +15,6 @@
  */
 import { writeFileSync } from 'node:fs';
 import { join } from 'node:path';
-import { parseArgs } from 'node:util';
 import cliProgress from 'cli-progress';
 import { helpIfAsked } from './help.js';
 import { blocksOf } from './score/blocks.js';
@@ -23,9 +22,9 @@ import { resultHashes, truthHash } from './score/codeHash.js';
 import { folder, keepFolders } from './score/folder.js';
 import { type Job, resultOf } from './score/job.js';
 import { missesOf } from './score/known.js';
+import { Refusal, scoreOptions } from './score/options.js';
 import { runJobs } from './score/pool.js';
-import { QUICK, SCENARIOS } from './score/scenarios.js';
-import { FIXED_FROM, freshSeeds, seedsDone } from './score/seeds.js';
+import { freshSeeds, seedsDone } from './score/seeds.js';
 import { tableText } from './score/table.js';
 import { truthIsKept } from './score/truthOf.js';
 import {
@@ -38,65 +37,17 @@ import {
 
 helpIfAsked(import.meta.url);
 
-const { values } = parseArgs({
-  options: {
-    seeds: { type: 'string' },
-    fresh: { type: 'string' },
-    only: { type: 'string' },
-    rows: { type: 'string' },
-    tuning: { type: 'boolean', default: false },
-    strict: { type: 'boolean', default: false },
-    quick: { type: 'boolean', default: false },
-    brief: { type: 'boolean', default: false },
-    'truths-only': { type: 'boolean', default: false },
-    workers: { type: 'string', default: '2' },
-  },
-});
-
-function refuse(text: string): never {
-  console.error(text);
-  process.exit(2);
+function readOptions(): ReturnType<typeof scoreOptions> {
+  try {
+    return scoreOptions(process.argv.slice(2));
+  } catch (thrown) {
+    if (!(thrown instanceof Refusal)) throw thrown;
+    console.error(thrown.message);
+    return process.exit(2);
+  }
 }
 
-function count(name: string, text: string, least: number): number {
-  const value = Number(text);
-  if (text.trim() !== '' && Number.isInteger(value) && value >= least) return value;
-  return refuse(`--${name} must be a whole number of at least ${least}, got "${text}"`);
-}
-
-/** The words of an option, or all there are. */
-function chosen(name: string, text: string | undefined, all: readonly string[]): Set<string> {
-  const words = text === undefined ? all : text.split(',');
-  const unknown = words.filter((word) => !all.includes(word));
-  if (unknown.length === 0) return new Set(words);
-  return refuse(`--${name} must be of ${all.join(', ')}; got ${unknown.join(', ')}`);
-}
-
-const list = values.quick ? QUICK : SCENARIOS;
-const only = chosen('only', values.only, [
-  ...list.map((s) => s.id),
-  ...(values.quick ? [] : ['watch']),
-]);
-const rows = chosen('rows', values.rows, [
-  ...new Set(list.flatMap((s) => s.rows.map((r) => r.id))),
-]);
-const scenarios = list
-  .filter((s) => only.has(s.id))
-  .map((s) => ({
-    ...s,
-    rows: s.rows.filter((r) => rows.has(r.id)),
-  }));
-
-const from = values.tuning ? 1 : FIXED_FROM;
-const fixed = Array.from(
-  { length: count('seeds', values.seeds ?? (values.quick ? '2' : '30'), 1) },
-  (_, i) => from + i,
-);
-const workers = count('workers', values.workers, 1);
-const freshCount =
-  values.tuning || values.quick || values['truths-only']
-    ? 0
-    : count('fresh', values.fresh ?? '5', 0);
+const { values, list, only, scenarios, fixed, workers, freshCount } = readOptions();
 const fresh = freshCount > 0 ? freshSeeds(freshCount, Date.now()) : [];
 if (fresh.length > 0) console.log(`fresh seeds of this run: ${fresh.join(', ')}`);
 

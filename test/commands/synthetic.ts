@@ -63,7 +63,6 @@ export function syntheticReading(
 
 export interface SyntheticOptions {
   readonly rows: number;
-  readonly without?: readonly string[];
   /** Rows in which every field is empty. */
   readonly empty?: readonly number[];
 }
@@ -72,9 +71,9 @@ export interface SyntheticOptions {
 export async function writeSynthetic(
   path: string,
   unit: UnitDefinition,
-  { rows, without = [], empty = [] }: SyntheticOptions,
+  { rows, empty = [] }: SyntheticOptions,
 ): Promise<void> {
-  const channels = unit.channels.filter((channel) => !without.includes(channel.id));
+  const { channels } = unit;
   const writer = await RecordingWriter.open(
     path,
     channels.map((channel) => channel.id),

@@ -1,7 +1,9 @@
 import { spawnSync } from 'node:child_process';
 import { describe, expect, it } from 'vitest';
+import { Refusal, scoreOptions } from '../../tools/score/options.js';
 import type { Scenario } from '../../tools/score/scenario.js';
 import { ALL_SCENARIOS, QUICK, SCENARIOS } from '../../tools/score/scenarios.js';
+import { FIXED_FROM } from '../../tools/score/seeds.js';
 import { root } from '../house/imports.js';
 
 function score(...args: string[]) {
@@ -10,17 +12,33 @@ function score(...args: string[]) {
 }
 
 describe('npm run score', () => {
-  it.each([
-    [['--seeds', '0'], /--seeds must be a whole number of at least 1, got "0"/],
-    [['--fresh', 'many'], /--fresh must be a whole number/],
-    [['--only', 'nominal,gab'], /--only must be of nominal, .*; got gab/],
-    [['--rows', 'all'], /--rows must be of all-independent, .*; got all/],
-  ])('refuses %s in one line that says what it takes', (args, words) => {
-    const { status, stderr, stdout } = score(...args);
-    expect(stderr).toMatch(words);
+  it('refuses in one line that says what an option takes, and does nothing else', () => {
+    const { status, stderr, stdout } = score('--only', 'nominal,gab');
+    expect(stderr).toMatch(/^--only must be of nominal, .*; got gab$/m);
     expect(stderr.trim().split('\n')).toHaveLength(1);
     expect(stdout).toBe('');
     expect(status).toBe(2);
+  });
+
+  it.each([
+    [['--seeds', '0'], '--seeds must be a whole number of at least 1, got "0"'],
+    [['--fresh', 'many'], '--fresh must be a whole number of at least 0, got "many"'],
+    [['--workers', '1.5'], '--workers must be a whole number of at least 1, got "1.5"'],
+    [['--rows', 'all'], /^--rows must be of all-independent, .*; got all$/],
+    [['--quick', '--only', 'watch'], /^--only must be of quick-cycle, .*; got watch$/],
+  ])('refuses %s', (args, words) => {
+    expect(() => scoreOptions(args)).toThrow(Refusal);
+    expect(() => scoreOptions(args)).toThrow(words);
+  });
+
+  it('takes the seeds for scoring, the first ones for tuning, two of them where it is quick', () => {
+    expect(scoreOptions(['--seeds', '2']).fixed).toEqual([FIXED_FROM, FIXED_FROM + 1]);
+    expect(scoreOptions(['--seeds', '2', '--tuning'])).toMatchObject({
+      ...{ fixed: [1, 2], freshCount: 0 },
+    });
+    expect(scoreOptions(['--quick'])).toMatchObject({ list: QUICK, freshCount: 0 });
+    expect(scoreOptions(['--quick']).fixed).toHaveLength(2);
+    expect(scoreOptions([])).toMatchObject({ list: SCENARIOS, freshCount: 5, workers: 2 });
   });
 });
 
