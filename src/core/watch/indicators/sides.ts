@@ -9,7 +9,7 @@ import {
 import { type SequentialState, startSequential, stepSequential } from '../sequential.js';
 
 /** The healthy value is taken this many of its sigmas nearer to the limit, as `follow` does. */
-const SAFE = 2;
+export const SAFE = 2;
 
 /** A unit's healthy value by `healthyOf`, for an indicator that keeps its baselines apart from its tests. */
 export function healthyBy(

@@ -8,9 +8,10 @@ import type {
   IndicatorsDefinition,
   IndicatorView,
 } from '../indicator.js';
-import { decisionAt, newInformation } from '../sequential.js';
+import { decisionAt } from '../sequential.js';
+import { lookAtRest, type RestScores, scoresOf } from './restTest.js';
 import { type Followed, remembered, shownAs, stampOf, startFollowed, withSigma } from './shown.js';
-import { beginAnew, testSide } from './sides.js';
+import { beginAnew, SAFE } from './sides.js';
 import { fitRest } from './standingFit.js';
 import { MEAN_S, type Rest, startRest, stepRest } from './standingRest.js';
 import { leakThrough } from './valveLeak.js';
@@ -54,8 +55,12 @@ interface Standing {
   rest: Rest | null;
   /** A rest was looked at, and told too little. */
   vain: boolean;
+  /** What the newest such look, if cards and model alone were to blame, left open of the loss; else null. */
+  vague: { readonly sigma: number; readonly hours: number } | null;
   /** What the present rest has told so far, in configured losses. */
   told: Told | null;
+  /** Scores of the test as the present rest began; null before its first look. */
+  from: RestScores | null;
   readonly followed: Followed;
   readonly healthy: BaselineState;
 }
@@ -68,9 +73,9 @@ export interface StandingLossState {
  * Heat lost while standing over what the bed model loses with the configured coefficients. Half an
  * hour after the flow has stopped the estimate is copied and marched on by itself: as configured, with
  * losses of mantle and of ends doubled, and with another conductivity. Changes of readings since then,
- * in which constant offsets cancel, against those of the models give the loss (see fitRest). What a
- * rest tells more every 2 h goes into the test; at its end it counts to what is healthy, unless the
- * test leans to degraded.
+ * in which constant offsets cancel, against those of the models give the loss (see fitRest). Every 2 h
+ * what the rest tells by then takes the place of what it told before in the test (see lookAtRest); at
+ * its end it counts to what is healthy, unless the test leans to degraded.
  */
 export const STANDING_LOSS: Indicator<StandingLossState> = {
   kind: 'standing_loss',
@@ -81,7 +86,8 @@ export const STANDING_LOSS: Indicator<StandingLossState> = {
       const away_m = fromWall(store);
       if (away_m <= REACH_M) follow(standing, store, s, rule, watching, input);
       const { followed, healthy } = standing;
-      const stamp = `${stampOf(followed)} ${standing.vain} ${healthy.count} ${healthy.begun_ms} ${rule.limit}`;
+      const open = `${standing.vain}/${standing.vague?.hours}`;
+      const stamp = `${stampOf(followed)} ${open} ${healthy.count} ${healthy.begun_ms} ${rule.limit}`;
       return remembered(standing, stamp, () => view(standing, store, away_m, rule));
     });
   },
@@ -93,7 +99,9 @@ function startStanding(): Standing {
     look_s: 0,
     rest: null,
     vain: false,
+    vague: null,
     told: null,
+    from: null,
     followed: startFollowed(),
     healthy: startBaseline(),
   };
@@ -117,7 +125,7 @@ function follow(
   const store = state.stores[s] as StoreState;
   const { followed, healthy } = standing;
   if (beginAnew([healthy], [followed.test], watching.baseline_from_ms))
-    Object.assign(standing, { followed: startFollowed() });
+    Object.assign(standing, { followed: startFollowed(), from: null });
   const stands = conditions.mode === 'stand' && conditions.flow_kg_s === 0 && conditions.flowKnown;
   if (!stands || !store.started || dt_s > GAP_S || taken.stores[s]?.step === 'reacquired') {
     endRest(standing, watching, time_ms);
@@ -133,6 +141,7 @@ function follow(
   const group_K = Math.SQRT2 * unit.estimator.group_offset_sigma_K;
   const { excess, sigma, fresh, misfit } = fitRest(readings, { group_K, noise_K: NOISE_K });
   standing.vain = true;
+  standing.vague = null;
   // Gas that leaks in carries heat to the ends that no standing model has.
   const { value: leak } = leakThrough(model, store, unit.limits.discharge.flow_max_kg_s);
   if (Math.abs(leak) > LEAKS) return;
@@ -143,7 +152,10 @@ function follow(
     sigma: Math.hypot(fresh * worse, MODEL_LOSS),
     whole: Math.hypot(sigma * worse, MODEL_LOSS),
   };
-  if (now.whole > USELESS) return;
+  if (now.whole > USELESS) {
+    standing.vague = { sigma: Math.min(99, now.whole), hours: standing.stood_s / 3600 };
+    return;
+  }
   standing.vain = false;
   test(standing, now, rule, watching, time_ms);
   standing.told = now;
@@ -174,7 +186,7 @@ function healthyOf({ healthy }: Standing): Healthy {
   };
 }
 
-/** What this rest tells more than it did the last time, against what is healthy. */
+/** What this rest tells by now, against what is healthy. */
 function test(
   standing: Standing,
   now: Told,
@@ -182,21 +194,21 @@ function test(
   { in_control_d }: IndicatorsDefinition,
   time_ms: number,
 ): void {
-  const { told, followed } = standing;
+  const { followed } = standing;
   const known = healthyOf(standing);
   const over = (loss: number): number => 1 + (loss - known.value) / known.one;
   // Against rests of its own, what the model makes wrong in all of them alike drops out.
-  const own = (one: Told) => ({ value: one.value, sigma: known.learned ? one.sigma : one.whole });
+  const sigma = known.learned ? now.sigma : now.whole;
   followed.value = over(now.value);
-  followed.sigma = Math.hypot(own(now).sigma, known.sigma) / known.one;
+  followed.sigma = Math.hypot(sigma, known.sigma) / known.one;
   followed.time_ms = time_ms;
-  followed.decision = decisionAt(in_control_d, LEAST_S);
-  const news = told === null ? own(now) : newInformation(own(told), own(now), 0);
-  if (news === null) return;
-  const healthy = { value: 1, sigma: known.sigma / known.one };
-  const limit = { degraded: rule.limit - 1, back: rule.limit - rule.deadband - 1 };
-  const tested = { value: over(news.value), sigma: news.sigma / known.one };
-  testSide(followed.test, tested, healthy, limit, followed.decision);
+  followed.decision = decisionAt(in_control_d, LOOK_S);
+  standing.from ??= scoresOf(followed.test);
+  const healthy = 1 + (SAFE * known.sigma) / known.one;
+  const limit = rule.limit - (followed.test.degraded ? rule.deadband : 0);
+  const tested = { value: followed.value, sigma: sigma / known.one };
+  const degraded = healthy + limit - 1;
+  lookAtRest(followed.test, standing.from, { ...tested, healthy, degraded }, followed.decision);
 }
 
 function endRest(
@@ -211,6 +223,7 @@ function endRest(
   standing.look_s = 0;
   standing.rest = null;
   standing.told = null;
+  standing.from = null;
 }
 
 function view(
@@ -234,13 +247,13 @@ function view(
     healthy: reason === 'not_instrumented' ? null : 1,
     healthy_from: known.learned ? 'learned' : 'configured',
     reason,
-    sentence: sentence(store.id, followed, away_m, known, reason, rule),
+    sentence: sentence(store.id, standing, away_m, known, reason, rule),
   });
 }
 
 function sentence(
   store: string,
-  { value, sigma, test }: Followed,
+  { followed: { value, sigma, test }, vague }: Standing,
   away_m: number,
   known: ReturnType<typeof healthyOf>,
   reason: IndicatorReason | null,
@@ -254,9 +267,12 @@ function sentence(
     );
   if ((value === null || sigma === null) && reason === 'too_uncertain')
     return (
-      `Store ${store}: what it loses while standing cannot be told from the rests so far: it moves the ` +
-      'thermocouples near wall and ends by less than cards swing, or gas leaks through it. A longer rest of ' +
-      'a full, tight store tells more.'
+      `Store ${store}: what it loses while standing cannot be told from the rests so far: ` +
+      (vague === null
+        ? 'gas leaks through it, or its thermocouples move as by nothing that is modelled. '
+        : `${vague.hours.toFixed(0)} h of rest tell it to +/- ${vague.sigma.toFixed(2)} of the configured loss only, ` +
+          'as it moves the thermocouples near wall and ends by no more than cards swing and the model errs. ') +
+      'A longer rest of a full, tight store tells more.'
     );
   if (value === null || sigma === null)
     return `Store ${store}: losses show after ${LEAST_S / MEAN_S} h of standing at a stretch or more.`;

@@ -81,8 +81,11 @@ export const STORE_MISMATCH: Indicator<StoreMismatchState> = {
     function take(now: StoreMismatchState, run: Run, factor: number): void {
       const known = healthyBy(now.healthy[run], HEALTHY);
       const value = factor * (now.difference - known.value);
-      const sigma = factor * Math.hypot(now.sigma, VALUE_SIGMA);
-      const healthy = { value: 0, sigma: factor * known.sigma };
+      const sigma = factor * VALUE_SIGMA;
+      // What the states of charge err by, heat capacities and the meter, stays from run to run: no value
+      // is news of it, and it moves the bound of what is healthy, as what is not known of the usual does.
+      const lasting = factor * Math.hypot(known.sigma, now.sigma);
+      const healthy = { value: 0, sigma: lasting };
       const limit = { degraded: rule.limit, back: rule.limit - rule.deadband };
       for (const [one, sign] of [
         [now.hot, 1],
@@ -92,7 +95,7 @@ export const STORE_MISMATCH: Indicator<StoreMismatchState> = {
         testSide(one.test, { value: sign * value, sigma }, healthy, limit, one.decision);
         Object.assign(one, {
           value: Math.abs(value),
-          sigma: Math.hypot(sigma, factor * known.sigma),
+          sigma: Math.hypot(sigma, lasting),
           time_ms,
         });
       }

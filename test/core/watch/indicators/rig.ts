@@ -22,6 +22,8 @@ export interface Moment {
   readonly values?: Readonly<Record<string, number>>;
   /** State of charge of the stores, hot and cold. */
   readonly soc?: readonly [number, number];
+  /** One sigma of each. */
+  readonly soc_sigma?: number;
 }
 
 /** An indicator over made-up scans of a unit, whose beds stand as they are set. */
@@ -61,7 +63,7 @@ export class Rig<S> {
 
   /** One scan. */
   step(moment: Moment): IndicatorView[] {
-    const { mode, flow_kg_s = 0, soc = [0.5, 0.5] } = moment;
+    const { mode, flow_kg_s = 0, soc = [0.5, 0.5], soc_sigma = 0.004 } = moment;
     this.time_ms += 1000 * this.scan_s;
     this.state.mode = mode;
     const values = new Float64Array(this.unit.channels.length).fill(Number.NaN);
@@ -76,7 +78,7 @@ export class Rig<S> {
     };
     const stores = soc.map((one) => ({
       step: 'updated',
-      energy: { soc: one, soc_sigma: 0.004 },
+      energy: { soc: one, soc_sigma },
     }));
     const taken = { conditions, dt_s: this.scan_s, stores, scan: { values } };
     const input = {

@@ -4,7 +4,14 @@ import { unitModel } from '../../../../src/core/unitModel.js';
 import { finerWall } from '../../../../src/core/watch/indicators/finerWall.js';
 import { fitRest, type RestReading } from '../../../../src/core/watch/indicators/standingFit.js';
 import { STANDING_LOSS } from '../../../../src/core/watch/indicators/standingLoss.js';
-import { copyBeds, rockAt, standOn } from '../../../../src/core/watch/indicators/standingModel.js';
+import {
+  copyBeds,
+  rockAt,
+  standOn,
+  VARIANTS,
+  type Variant,
+} from '../../../../src/core/watch/indicators/standingModel.js';
+import { decisionAt } from '../../../../src/core/watch/sequential.js';
 import { normals } from '../normals.js';
 import { demo, Rig } from './rig.js';
 
@@ -67,8 +74,11 @@ describe('standing loss', () => {
     const [wet, cold] = rest(rig, 34, 2.4, 3);
     expect(wet).toMatchObject({ state: 'degraded', subject: 'hot' });
     expect(Math.abs(wet!.value! - 2)).toBeLessThan(2 * wet!.sigma!);
-    // A cold store moves its string by half a kelvin: less than a card swings.
-    expect(cold!.state).not.toBe('degraded');
+    // A cold store moves its string by a fifth of a kelvin and its ends by one: a rest tells too little.
+    expect(cold).toMatchObject({ state: 'undetermined', reason: 'too_uncertain', value: null });
+    expect(cold!.sentence).toMatch(
+      /33 h of rest tell it to \+\/- 0\.4\d of the configured loss only/,
+    );
   });
 
   it('does not take a card that swings for a loss, rest after rest', () => {
@@ -88,6 +98,48 @@ describe('standing loss', () => {
     const [hot] = new Rig(STANDING_LOSS, { ...demo, stores }).run(2, () => ({ mode: 'stand' }));
     expect(hot).toMatchObject({ state: 'undetermined', reason: 'not_instrumented', value: null });
     expect(hot!.sentence).toMatch(/cannot be told: the outermost string hangs 1\.8 m from it/);
+  });
+});
+
+describe('what a rest of 36 h can tell of a full cold store', () => {
+  it('is less than a decision on a doubled loss takes', () => {
+    const rig = charged();
+    const model = rig.model.stores[1]!;
+    const beds = Object.fromEntries(
+      VARIANTS.map((variant) => [variant, copyBeds(model, rig.state.stores[1]!)]),
+    ) as Record<Variant, ReturnType<typeof copyBeds>>;
+    const march = (hours: number) => {
+      for (let n = 0; n < 2 * hours; n++)
+        for (const variant of VARIANTS) standOn(model, variant, beds[variant], 288, 1800);
+      return Object.fromEntries(
+        VARIANTS.map((variant) => [variant, rockAt(model, beds[variant])]),
+      ) as Record<Variant, ReturnType<typeof rockAt>>;
+    };
+    const first = march(1);
+    const last = march(35);
+    const readings = model.tubes.flatMap(({ string }, k) =>
+      string.thermocouples.map(({ group }, s): RestReading => {
+        const i = 14 * k + s;
+        const moved = (variant: Variant) =>
+          last[variant].temperature_K[i]! - first[variant].temperature_K[i]!;
+        const own = moved('as_configured');
+        const slope_K_m = first.as_configured.slope_K_m[i]!;
+        return {
+          ...{ off_K: 0, mantle_K: moved('mantle') - own, ends_K: moved('ends') - own },
+          conductivity_K: (moved('conductivity') - own) / Math.log(1.2),
+          ...{ slope_K_m, bent_K_m: last.as_configured.slope_K_m[i]! - slope_K_m },
+          ...{ moved_K: own, string: k, group },
+        };
+      }),
+    );
+    const group_K = Math.SQRT2 * demo.estimator.group_offset_sigma_K;
+    const { sigma, fresh } = fitRest(readings, { group_K, noise_K: 0.15 });
+    expect(sigma).toBeCloseTo(0.42, 1);
+    expect(fresh).toBeCloseTo(0.26, 1);
+    // Were healthy known as well as any number of rests tells it (0.05): the ratio by a loss of 2, limit 1.6.
+    const ratio = (0.6 / (fresh ** 2 + 0.06 ** 2)) * (2 - 1.1 - 0.3);
+    expect(ratio).toBeLessThan(0.6 * decisionAt(3000, 7200));
+    expect(ratio).toBeGreaterThan(0.4 * decisionAt(3000, 7200));
   });
 });
 

@@ -8,13 +8,13 @@ import { demo, Rig } from './rig.js';
 function cycles() {
   const rig = new Rig(STORE_MISMATCH, demo, 600);
   const z = normals(10);
-  const cycle = (more: number) => {
+  const cycle = (more: number, soc_sigma = 0.004) => {
     const apart = 0.04 + more + 0.01 * z();
     const level = (soc: number) => [soc + apart, soc] as const;
-    rig.run(4, () => ({ mode: 'charge', flow_kg_s: 18, soc: level(0.85) }));
-    rig.run(1, () => ({ mode: 'stand', soc: level(0.85) }));
-    rig.run(3, () => ({ mode: 'discharge', flow_kg_s: -22, soc: level(0.15) }));
-    return rig.run(1, () => ({ mode: 'stand', soc: level(0.15) }))[0]!;
+    rig.run(4, () => ({ mode: 'charge', flow_kg_s: 18, soc: level(0.85), soc_sigma }));
+    rig.run(1, () => ({ mode: 'stand', soc: level(0.85), soc_sigma }));
+    rig.run(3, () => ({ mode: 'discharge', flow_kg_s: -22, soc: level(0.15), soc_sigma }));
+    return rig.run(1, () => ({ mode: 'stand', soc: level(0.15), soc_sigma }))[0]!;
   };
   return { rig, cycle };
 }
@@ -43,6 +43,17 @@ describe('store mismatch', () => {
     for (let n = 0; n < 8; n++) view = cycle(0.1);
     expect(view).toMatchObject({ state: 'normal', healthy_from: 'learned' });
     expect(Math.abs(view.value!)).toBeLessThan(0.05);
+  });
+
+  it('does not add up what the states of charge err by all the time, as if each run told it anew', () => {
+    const { cycle } = cycles();
+    for (let n = 0; n < 6; n++) cycle(0, 0.02);
+    // 2.5 of the sigmas of the difference, 0.028, and just beyond the limit of 0.1 times 1/1.46.
+    let view = cycle(0.07, 0.02);
+    for (let n = 0; n < 50; n++) view = cycle(0.07, 0.02);
+    expect(view).toMatchObject({ state: 'normal' });
+    for (let n = 0; n < 6; n++) view = cycle(0.2, 0.02);
+    expect(view).toMatchObject({ state: 'degraded' });
   });
 
   it('shows at the end of a run, and not by a store alone', () => {
