@@ -1,6 +1,6 @@
 import type { History } from '../adapters/history/history.js';
 import type { HealthPart } from '../adapters/http/service.js';
-import { EventTeller } from '../adapters/mqtt/eventTeller.js';
+import { EventTeller } from '../adapters/notify/eventTeller.js';
 import { WebhookForwarder } from '../adapters/notify/webhookForwarder.js';
 import type { NotifyConfig, WebhookConfig } from '../config/site.js';
 import type { Log } from '../log.js';

@@ -68,7 +68,7 @@ const WATCH_MS = 60_000;
  * - `PREFIX/UNIT/alarms`    see AlarmsMessage; `.../command` and `.../answer` are in alarmCommands
  * - `PREFIX/UNIT/watch`     what the indicators show and what is probably behind it, see WatchView; at
  *                           most once a minute of source time unless an indicator changed its state
- * - `PREFIX/UNIT/event`     each alarm and alert that is raised or returns, not retained; see eventTeller
+ * - `PREFIX/UNIT/event`     each alarm and alert that is raised or returns, not retained; by notify/eventTeller
  * - `PREFIX/heartbeat`      `{"status": "online", "time", "site", "version", "uptime_s"}` every 10 s,
  *                           and `{"status": "offline"}` by the broker's last will or a clean stop
  *

@@ -1,6 +1,7 @@
 import type { WebhookConfig } from '../../config/site.js';
 import type { ToldEvent } from '../../core/alarm/telling.js';
 import { reasonOf } from '../../errors.js';
+import { type EventQueue, QueueLoop } from './queueLoop.js';
 import { signedHeaders } from './signature.js';
 
 export const WEBHOOK_COUNTS = [
@@ -12,19 +13,6 @@ export const WEBHOOK_COUNTS = [
   'webhook_set_aside',
 ] as const;
 export type WebhookCount = (typeof WEBHOOK_COUNTS)[number];
-
-export interface QueuedEvent {
-  readonly seq: number;
-  readonly event: ToldEvent;
-}
-
-/** What is told, in the order in which it was made, and how far this receiver has it; kept on disk. */
-export interface EventQueue {
-  /** Events behind the cursor, oldest first, at most `most`. */
-  read(most: number): readonly QueuedEvent[];
-  moveTo(seq: number): void;
-  readonly backlog: number;
-}
 
 export interface WebhookOptions {
   readonly config: WebhookConfig;
@@ -45,28 +33,35 @@ export interface WebhookOptions {
 const IDLE_MS = 1000;
 const RETRY_LEAST_MS = 1000;
 const RETRY_MOST_MS = 300_000;
-const ITEMS = 50;
 /** Says that the message itself is not accepted: sending it again would change nothing. */
 const REFUSED = new Set([400, 406, 409, 410, 413, 415, 422]);
 const RANK = { high: 0, medium: 1, low: 2 } as const;
 
 /**
- * Posts what is told of alarms and alerts to one receiver, one by one in order, at least once, behind a cursor on
- * disk: a receiver that is away gets all that happened meanwhile, up to `oldest_h`, and knows what it
- * has by `webhook-id`. Any 2xx is delivered. What the receiver refuses as such is set aside; all else
- * (no connection, no answer in time, a redirect, 401, 404, 429, 5xx) is tried again with growing pauses. It runs
- * on its own timer: nothing else waits for it.
+ * Posts what is told of alarms and alerts to one receiver, behind a cursor on disk: a receiver that is
+ * away gets all that happened meanwhile, up to `oldest_h`, and knows what it has by `webhook-id`. Any 2xx
+ * is delivered. What the receiver refuses as such is set aside; all else (no connection, no answer in
+ * time, a redirect, 401, 404, 429, 5xx) is tried again with growing pauses.
  */
 export class WebhookForwarder {
-  private timer: NodeJS.Timeout | null = null;
-  private round: Promise<void> = Promise.resolve();
+  private readonly loop: QueueLoop;
   private underWay: AbortController | null = null;
-  private running = false;
   private retry_ms: number;
   private reason: string | null = null;
 
   constructor(private readonly options: WebhookOptions) {
     this.retry_ms = options.retry_least_ms ?? RETRY_LEAST_MS;
+    this.loop = new QueueLoop({
+      queue: options.queue,
+      idle_ms: IDLE_MS,
+      deliver: ({ seq, event }) => this.forward(seq, event),
+      failed: (thrown) => {
+        this.failed(reasonOf(thrown));
+        const pause_ms = this.retry_ms;
+        this.retry_ms = Math.min(RETRY_MOST_MS, this.retry_ms * 2);
+        return pause_ms;
+      },
+    });
   }
 
   /** Why nothing can be delivered now, null while all is well. */
@@ -75,56 +70,21 @@ export class WebhookForwarder {
   }
 
   start(): void {
-    if (this.running) return;
-    this.running = true;
-    this.schedule(0);
+    this.loop.start();
   }
 
   /** Cuts a request under way short: it will be repeated. */
   async stop(): Promise<void> {
-    this.running = false;
-    if (this.timer) clearTimeout(this.timer);
-    this.timer = null;
+    const over = this.loop.stop();
     this.underWay?.abort();
-    await this.round;
+    await over;
   }
 
-  private schedule(delay_ms: number): void {
-    if (!this.running) return;
-    this.timer = setTimeout(() => {
-      this.round = this.run();
-    }, delay_ms);
-  }
-
-  private async run(): Promise<void> {
-    try {
-      const more = await this.forward();
-      if (!this.running) return;
-      this.schedule(more ? 0 : IDLE_MS);
-    } catch (thrown) {
-      if (!this.running) return;
-      this.failed(reasonOf(thrown));
-      this.schedule(this.retry_ms);
-      this.retry_ms = Math.min(RETRY_MOST_MS, this.retry_ms * 2);
-    }
-  }
-
-  /** One page of the queue; true where more may wait. */
-  private async forward(): Promise<boolean> {
-    const { queue, config, count, now } = this.options;
-    const page = queue.read(ITEMS);
-    for (const { seq, event } of page) {
-      if (!this.running) return false;
-      if (this.isWanted(event)) {
-        if (now() - Date.parse(event.time) > config.oldest_h * 3_600_000)
-          count('webhook_expired', 1);
-        else await this.deliver(seq, event);
-      }
-      // Stopped meanwhile, the queue may be closed: the event is sent again after the next start.
-      if (!this.running) return false;
-      queue.moveTo(seq);
-    }
-    return page.length === ITEMS;
+  private async forward(seq: number, event: ToldEvent): Promise<void> {
+    const { config, count, now } = this.options;
+    if (!this.isWanted(event)) return;
+    if (now() - Date.parse(event.time) > config.oldest_h * 3_600_000) count('webhook_expired', 1);
+    else await this.deliver(seq, event);
   }
 
   private isWanted(event: ToldEvent): boolean {

@@ -1,8 +1,8 @@
 import { connectAsync } from 'mqtt';
 import { afterEach, describe, expect, it } from 'vitest';
 import { EmbeddedBroker } from '../../../src/adapters/mqtt/broker.js';
-import { EventTeller } from '../../../src/adapters/mqtt/eventTeller.js';
 import { MqttLink } from '../../../src/adapters/mqtt/link.js';
+import { EventTeller } from '../../../src/adapters/notify/eventTeller.js';
 import type { WatchEvent } from '../../../src/core/watch/event.js';
 import { freePort } from '../../support/ports.js';
 import { waitFor } from '../../support/wait.js';
