@@ -21,11 +21,14 @@ export interface HousekeepingOptions {
 }
 
 const RETENTION_EVERY_MS = 3_600_000;
+/** Between two days of an older history that are rolled up [ms]. */
+const ROLL_UP_EVERY_MS = 1000;
 const DAY_MS = 86_400_000;
 
-/** What the clock does: scans closed at their deadline, old rows deleted. */
+/** What the clock does: scans closed at their deadline, old rows rolled up and deleted. */
 export class Housekeeping {
   private timers: NodeJS.Timeout[] = [];
+  private rolling: NodeJS.Timeout | null = null;
   private mayClose = false;
 
   constructor(private readonly options: HousekeepingOptions) {}
@@ -39,11 +42,14 @@ export class Housekeeping {
       setInterval(() => this.retain(), RETENTION_EVERY_MS),
       setTimeout(() => this.allowClosing(), patience_ms),
     ];
+    this.rolling = setTimeout(() => this.rollUp(), ROLL_UP_EVERY_MS);
   }
 
   stop(): void {
     for (const timer of this.timers) clearTimeout(timer);
     this.timers = [];
+    if (this.rolling) clearTimeout(this.rolling);
+    this.rolling = null;
   }
 
   /**
@@ -56,6 +62,20 @@ export class Housekeeping {
 
   private closeDue(): void {
     if (this.mayClose) this.options.pipeline.closeDue();
+  }
+
+  /** What an older version stored is rolled up beside the scans; then there is nothing for an hour. */
+  private rollUp(): void {
+    const { history, counters, notices } = this.options;
+    let goesOn = false;
+    try {
+      goesOn = history.rollUp();
+    } catch (thrown) {
+      counters.add('history_failures');
+      notices.warn('history_failures', reasonOf(thrown));
+    }
+    const wait_ms = goesOn ? ROLL_UP_EVERY_MS : RETENTION_EVERY_MS;
+    this.rolling = setTimeout(() => this.rollUp(), wait_ms);
   }
 
   private retain(): void {

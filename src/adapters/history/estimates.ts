@@ -2,9 +2,11 @@ import type { UnitDefinition } from '../../core/definitions.js';
 import type { DispatchAnswer, Estimate } from '../../core/estimate.js';
 import { stretchFor } from './buckets.js';
 import type { Database } from './database.js';
+import type { Layouts } from './layouts.js';
+import { type Rollups, STORED, valuesOf } from './rollups.js';
 import type { Sequence } from './sequence.js';
 import { type Measured, seriesNames, seriesValues, wordsOf } from './series.js';
-import { partOf, pointsOf, type SeriesPart, type ThinnedPoint, thin } from './thin.js';
+import { pointsOf, type ThinnedPoint, thin } from './thin.js';
 
 interface StoredRow {
   time: number;
@@ -19,28 +21,24 @@ export interface EstimateThen extends Measured {
 
 /** Estimates and dispatch answers by unit and time. A time once written stays as it is. */
 export class Estimates {
-  private readonly layouts = new Map<number, readonly string[]>();
-  private readonly layoutOfUnit = new Map<string, number>();
-
   constructor(
     private readonly database: Database,
     private readonly sequence: Sequence,
-  ) {
-    const rows = database.prepare('SELECT no, names FROM layouts').all();
-    for (const row of rows as { no: number; names: string }[]) {
-      this.layouts.set(row.no, JSON.parse(row.names) as string[]);
-    }
-  }
+    private readonly layouts: Layouts,
+    private readonly rollups: Rollups,
+  ) {}
 
   /** @returns false where the unit already has an estimate of this time */
   add(unit: UnitDefinition, estimate: Estimate, measured: Measured): boolean {
     const time_ms = Date.parse(estimate.time);
     const values = seriesValues(unit, estimate, measured);
+    const layout = this.layouts.numberFor(unit);
     const isNew = this.insert(
       'INSERT OR IGNORE INTO estimates (seq, unit, time, json, layout, series) VALUES (?, ?, ?, ?, ?, ?)',
-      ...[unit.id, time_ms, JSON.stringify(estimate), this.layout(unit)],
+      ...[unit.id, time_ms, JSON.stringify(estimate), layout],
       Buffer.from(values.buffer),
     );
+    if (isNew) this.rollups.added(unit.id, layout, time_ms, values);
     if (estimate.dispatch) this.addDispatch(unit.id, time_ms, estimate.dispatch);
     return isNew;
   }
@@ -80,9 +78,10 @@ export class Estimates {
     const off = (row: StoredRow) => Math.abs(row.time - time_ms);
     const [nearest] = found.filter((row) => row !== undefined).sort((a, b) => off(a) - off(b));
     if (nearest === undefined) return null;
-    const { names, means } = this.part(nearest);
+    const names = this.layouts.of(nearest.layout);
+    const values = valuesOf(nearest.series);
     const measured = (name: keyof Measured) => {
-      const value = means[names.indexOf(name)];
+      const value = values[names.indexOf(name)];
       return value === undefined || Number.isNaN(value) ? null : value;
     };
     return {
@@ -128,12 +127,13 @@ export class Estimates {
            WHERE unit = ? AND time BETWEEN ? AND ? LIMIT ?)`,
       )
       .pluck();
-    const rows = this.parts(unit, from_ms, to_ms);
     if ((count.get(unit, from_ms, to_ms, points + 1) as number) <= points) {
+      const rows = this.rollups.parts(unit, from_ms, to_ms + 1, STORED);
       return { points: pointsOf(rows, wanted), bucket_ms: null };
     }
-    const { bucket_ms } = stretchFor(from_ms, to_ms, points);
-    return { points: thin(rows, bucket_ms, wanted), bucket_ms };
+    const { bucket_ms, level } = stretchFor(from_ms, to_ms, points);
+    const parts = this.rollups.parts(unit, from_ms, to_ms + 1, level);
+    return { points: thin(parts, bucket_ms, wanted), bucket_ms };
   }
 
   /**
@@ -146,7 +146,7 @@ export class Estimates {
     to_ms: number,
     names: readonly string[],
   ): IterableIterator<{ time_ms: number; values: number[] }> {
-    for (const row of this.parts(unit, from_ms, to_ms)) {
+    for (const row of this.rollups.parts(unit, from_ms, to_ms + 1, STORED)) {
       const values = names.map((name) => row.means[row.names.indexOf(name)] ?? Number.NaN);
       yield { time_ms: row.time_ms, values };
     }
@@ -157,21 +157,6 @@ export class Estimates {
     return seriesNames(unit).flatMap((name) =>
       wordsOf(name) ? [name] : [name, `${name}.min`, `${name}.max`],
     );
-  }
-
-  private *parts(unit: string, from_ms: number, to_ms: number): IterableIterator<SeriesPart> {
-    const select = this.database.prepare(
-      'SELECT time, layout, series FROM estimates WHERE unit = ? AND time BETWEEN ? AND ? ORDER BY time',
-    );
-    const rows = select.iterate(unit, from_ms, to_ms) as IterableIterator<StoredRow>;
-    for (const row of rows) yield this.part(row);
-  }
-
-  private part({ time, layout, series }: StoredRow): SeriesPart {
-    // SQLite's buffers are not aligned to eight bytes.
-    const bytes = Uint8Array.prototype.slice.call(series);
-    const values = new Float64Array(bytes.buffer, bytes.byteOffset, bytes.byteLength / 8);
-    return partOf(time, this.layouts.get(layout) ?? [], values);
   }
 
   private newest<T>(table: string, unit: string): { time: number; content: T } | null {
@@ -185,16 +170,5 @@ export class Estimates {
     const isNew = this.database.prepare(sql).run(this.sequence.next, ...values).changes > 0;
     if (isNew) this.sequence.next++;
     return isNew;
-  }
-
-  private layout(unit: UnitDefinition): number {
-    const known = this.layoutOfUnit.get(unit.id);
-    if (known !== undefined) return known;
-    const names = JSON.stringify(seriesNames(unit));
-    this.database.prepare('INSERT OR IGNORE INTO layouts (names) VALUES (?)').run(names);
-    const no = this.database.prepare('SELECT no FROM layouts WHERE names = ?').pluck().get(names);
-    this.layouts.set(no as number, JSON.parse(names) as string[]);
-    this.layoutOfUnit.set(unit.id, no as number);
-    return no as number;
   }
 }

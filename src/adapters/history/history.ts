@@ -6,10 +6,12 @@ import { type Database, openDatabase, openToRead, storeFailure } from './databas
 import { Estimates } from './estimates.js';
 import { EventQueue } from './eventQueue.js';
 import { Events } from './events.js';
+import { Layouts } from './layouts.js';
 import { Offers } from './offers.js';
 import { Outbox } from './outbox.js';
 import { Profiles } from './profiles.js';
 import { applyRetention, type RetentionCounts } from './retention.js';
+import { Rollups } from './rollups.js';
 import { HISTORY_SCHEMA } from './schema.js';
 import { Sequence } from './sequence.js';
 import { WatchViews } from './watchViews.js';
@@ -22,6 +24,7 @@ import { WatchViews } from './watchViews.js';
 export class History {
   private opened: {
     readonly database: Database;
+    readonly rollups: Rollups;
     readonly estimates: Estimates;
     readonly profiles: Profiles;
     readonly events: Events;
@@ -54,9 +57,12 @@ export class History {
   private open(database: Database): void {
     const sequence = new Sequence(database);
     const alarms = new Alarms(database, this.rules);
+    const layouts = new Layouts(database);
+    const rollups = new Rollups(database, layouts);
     this.opened = {
       database,
-      estimates: new Estimates(database, sequence),
+      rollups,
+      estimates: new Estimates(database, sequence, layouts, rollups),
       profiles: new Profiles(database),
       events: new Events(database, sequence, alarms),
       alarms,
@@ -121,7 +127,13 @@ export class History {
 
   /** See applyRetention. */
   retain(now_ms: number, forwarded: number): RetentionCounts {
-    return this.write(() => applyRetention(this.parts.database, this.store, now_ms, forwarded));
+    const { database, rollups } = this.parts;
+    return this.write(() => applyRetention(database, rollups, this.store, now_ms, forwarded));
+  }
+
+  /** Rolls up a day of what is not yet, as an older version left it; false where there is no such day. */
+  rollUp(): boolean {
+    return this.write(() => this.parts.rollups.fillBack());
   }
 
   private get parts(): NonNullable<History['opened']> {

@@ -1,6 +1,7 @@
 import type { StoreConfig } from '../../config/site.js';
 import type { Database } from './database.js';
 import { MOST_KEPT } from './offers.js';
+import type { Rollups } from './rollups.js';
 
 const DAY_MS = 86_400_000;
 /** Most source time thinned in one go [ms]: a day of 30 s scans takes some 20 ms. */
@@ -20,11 +21,13 @@ export interface RetentionCounts {
  * Deletes what is older than the configuration keeps, and thins estimates to one (the last) per
  * `thin_to_s` once they are older than `thin_after_days`. Times are source times against `now_ms`.
  * What is still due to the time-series database is not thinned, but it does not outlive its
- * retention either: the disk must not fill because that database is gone.
+ * retention either: the disk must not fill because that database is gone. Roll-ups are kept as long
+ * as estimates are, and are those of all rows, thinned ones included.
  * @param forwarded cursor of the forwarder, Infinity where there is none
  */
 export function applyRetention(
   database: Database,
+  rollups: Rollups,
   store: StoreConfig,
   now_ms: number,
   forwarded: number,
@@ -42,7 +45,8 @@ export function applyRetention(
     const events = remove(database, 'events', end);
     const cycles = remove(database, 'cycles', end);
     for (const table of ['alarm_transitions', 'tellings']) remove(database, table, end);
-    estimates += thinEstimates(database, store, now_ms, limit);
+    rollups.forget(end);
+    estimates += thinEstimates(database, rollups, store, now_ms, limit);
     return { estimates, events, cycles, offers, not_forwarded };
   })();
 }
@@ -77,6 +81,7 @@ export function removeSurplusOffers(database: Database, most = MOST_KEPT): numbe
 
 function thinEstimates(
   database: Database,
+  rollups: Rollups,
   store: StoreConfig,
   now_ms: number,
   limit: number,
@@ -96,6 +101,8 @@ function thinEstimates(
     .prepare('SELECT 1 FROM estimates WHERE time >= @start AND time < @to AND seq > @limit')
     .get(span);
   if (waiting) return 0;
+  // Their extremes outlive them: rolled up first, and where older ones still wait for it, not yet.
+  if (!rollups.units().every((unit) => rollups.close(unit, to))) return 0;
   const { changes } = database
     .prepare(
       `DELETE FROM estimates WHERE time >= @start AND time < @to AND seq NOT IN (

@@ -87,4 +87,17 @@ export const HISTORY_SCHEMA = [
    INSERT INTO tellings (no, time, json) SELECT seq, time, json FROM events
      WHERE seq > (SELECT min(value) FROM cursors WHERE name LIKE 'events to %') ORDER BY seq;
    UPDATE alarms SET alarm = json_set(alarm, '$.told', json(iif(alarm ->> '$.active', 'true', 'false')));`,
+  // Series of estimates rolled up over stretches of time (time: their begin), and from when to when that
+  // is done; what is older at this step is rolled up later, while the daemon runs.
+  `CREATE TABLE rollup_10min (
+     unit TEXT NOT NULL, time INTEGER NOT NULL, layout INTEGER NOT NULL, last INTEGER NOT NULL,
+     content BLOB NOT NULL, PRIMARY KEY (unit, time, layout));
+   CREATE TABLE rollup_2h (
+     unit TEXT NOT NULL, time INTEGER NOT NULL, layout INTEGER NOT NULL, last INTEGER NOT NULL,
+     content BLOB NOT NULL, PRIMARY KEY (unit, time, layout));
+   CREATE TABLE rollup_1d (
+     unit TEXT NOT NULL, time INTEGER NOT NULL, layout INTEGER NOT NULL, last INTEGER NOT NULL,
+     content BLOB NOT NULL, PRIMARY KEY (unit, time, layout));
+   CREATE TABLE rolled_up (
+     unit TEXT PRIMARY KEY, "from" INTEGER NOT NULL, "to" INTEGER NOT NULL) WITHOUT ROWID;`,
 ];

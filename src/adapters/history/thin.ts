@@ -45,29 +45,42 @@ export const NONE: Readonly<Sum> = {
   greatest: Number.NaN,
 };
 
-/** Takes series `i` of a part, which is the later one, into a sum of the series of this name. */
-export function addToSum(sum: Sum, name: string, part: SeriesPart, i: number): void {
+/**
+ * Takes series `i` of a part into a sum of the series of this name.
+ *
+ * @param isLater whether the part's last row is the newest so far: of words the last counts
+ */
+export function addToSum(
+  sum: Sum,
+  name: string,
+  part: SeriesPart,
+  i: number,
+  isLater = true,
+): void {
   const mean = part.means[i]!;
   const count = part.counts === null ? Number(Number.isFinite(mean)) : part.counts[i]!;
   if (count === 0 || !Number.isFinite(mean)) return;
   const before = sum.count;
   sum.count += count;
-  const isFirst = before === 0 || wordsOf(name) !== undefined;
-  sum.mean = isFirst ? mean : sum.mean + ((mean - sum.mean) * count) / sum.count;
+  if (before === 0) sum.mean = mean;
+  else if (wordsOf(name) === undefined) sum.mean += ((mean - sum.mean) * count) / sum.count;
+  else if (isLater) sum.mean = mean;
   sum.least = before === 0 ? part.least[i]! : Math.min(sum.least, part.least[i]!);
   sum.greatest = before === 0 ? part.greatest[i]! : Math.max(sum.greatest, part.greatest[i]!);
 }
 
-/** Rows as they were stored, as points of the series named that they have. */
+/** Rows as they were stored, as points of the series wanted that they have. */
 export function pointsOf(
   rows: Iterable<SeriesPart>,
   wanted: ReadonlySet<string> | null,
 ): ThinnedPoint[] {
-  return [...rows].map((row) => {
-    const sums = new Map<string, Sum>();
-    take(sums, row, wanted);
-    return pointOf(row.time_ms, sums, false);
-  });
+  const stretch = new Stretch(wanted);
+  const found: ThinnedPoint[] = [];
+  for (const row of rows) {
+    stretch.take(row);
+    found.push(pointOf(row.time_ms, stretch.end(), false));
+  }
+  return found;
 }
 
 /**
@@ -84,33 +97,50 @@ export function thin(
   wanted: ReadonlySet<string> | null,
 ): ThinnedPoint[] {
   const found: ThinnedPoint[] = [];
-  let sums = new Map<string, Sum>();
-  let stretch = Number.NaN;
+  const stretch = new Stretch(wanted);
+  let place = Number.NaN;
   let time_ms = 0;
   for (const part of parts) {
-    const place = Math.floor(part.time_ms / bucket_ms);
-    if (place !== stretch && sums.size > 0) {
-      found.push(pointOf(time_ms, sums, true));
-      sums = new Map();
-    }
-    stretch = place;
+    const own = Math.floor(part.time_ms / bucket_ms);
+    if (own !== place && !Number.isNaN(place)) found.push(pointOf(time_ms, stretch.end(), true));
+    place = own;
     time_ms = part.time_ms;
-    take(sums, part, wanted);
+    stretch.take(part);
   }
-  if (sums.size > 0) found.push(pointOf(time_ms, sums, true));
+  if (!Number.isNaN(place)) found.push(pointOf(time_ms, stretch.end(), true));
   return found;
 }
 
-function take(sums: Map<string, Sum>, part: SeriesPart, wanted: ReadonlySet<string> | null): void {
-  part.names.forEach((name, i) => {
-    if (wanted !== null && !wanted.has(name)) return;
-    let sum = sums.get(name);
-    if (sum === undefined) {
-      sum = { ...NONE };
-      sums.set(name, sum);
-    }
-    addToSum(sum, name, part, i);
-  });
+/** Sums by series over some parts, most of which have the same series in the same places. */
+class Stretch {
+  private sums = new Map<string, Sum>();
+  private names: readonly string[] | null = null;
+  private places: { readonly i: number; readonly name: string; readonly sum: Sum }[] = [];
+
+  constructor(private readonly wanted: ReadonlySet<string> | null) {}
+
+  take(part: SeriesPart): void {
+    if (part.names !== this.names) this.look(part.names);
+    for (const { i, name, sum } of this.places) addToSum(sum, name, part, i);
+  }
+
+  /** The sums so far; the next part begins new ones. */
+  end(): ReadonlyMap<string, Sum> {
+    const { sums } = this;
+    this.sums = new Map();
+    this.names = null;
+    return sums;
+  }
+
+  private look(names: readonly string[]): void {
+    this.names = names;
+    this.places = names.flatMap((name, i) => {
+      if (this.wanted?.has(name) === false) return [];
+      const sum = this.sums.get(name) ?? { ...NONE };
+      this.sums.set(name, sum);
+      return [{ i, name, sum }];
+    });
+  }
 }
 
 function pointOf(
