@@ -1,0 +1,50 @@
+import { signal } from '@preact/signals';
+import { wordsOf } from '../../lib/api.js';
+import { api, reloadAlarms } from '../../lib/page.js';
+import { rememberWho, who } from './who.js';
+
+export type Action = 'acknowledge' | 'reset' | 'unshelve' | 'return_to_service';
+export type HidingAction = 'shelve' | 'out_of_service';
+
+/** What was wrong with the last command, in words. */
+export const commandFault = signal('');
+
+const NOT_DONE: Readonly<Record<Action | HidingAction, string>> = {
+  acknowledge: 'Not acknowledged.',
+  reset: 'Not reset.',
+  unshelve: 'Not taken from the shelf.',
+  return_to_service: 'Not taken back into service.',
+  shelve: 'Not shelved.',
+  out_of_service: 'Not taken out of service.',
+};
+
+const pathOf = (action: Action | HidingAction) => `api/alarms/${action.replaceAll('_', '-')}`;
+
+/** @returns what was wrong, in words; null where it is done */
+export async function send(
+  action: Action | HidingAction,
+  body: { id: string; why?: string; hours?: number },
+): Promise<string | null> {
+  let fault: string | null = null;
+  try {
+    await api.post(pathOf(action), { ...body, who: who.value.trim() });
+    rememberWho();
+  } catch (error) {
+    fault = `${NOT_DONE[action]} ${wordsOf(error)}`;
+  }
+  await reloadAlarms();
+  return fault;
+}
+
+/** A command that asks for a name only; without one it says so and goes to its field. */
+export async function command(action: Action, id: string): Promise<void> {
+  if (who.value.trim() === '') {
+    commandFault.value =
+      action === 'acknowledge'
+        ? 'Say first who acknowledges: a name is recorded with it.'
+        : 'Say first who does so: a name is recorded with it.';
+    document.getElementById('who')?.focus();
+    return;
+  }
+  commandFault.value = (await send(action, { id })) ?? '';
+}
