@@ -172,6 +172,17 @@ function runUntil(plant: DemoPlant, hours: number, done: () => boolean): void {
   throw new Error(`not reached within ${hours} plant hours`);
 }
 
+/** Runs a plant that discharges at rated power for an hour, by which its true hours become fewer. */
+function knowsItsHours(plant: DemoPlant): void {
+  const hours = plant.hoursTruth(unit.rated_power_W);
+  expect(plant.truth().mode).toBe('discharge');
+  for (let n = 0; n < 3600 / unit.scan_period_s; n++) plant.step();
+  // An hour later at the same power an hour less is left; both are counted in half minutes.
+  expect(hours - plant.hoursTruth(unit.rated_power_W)).toBeCloseTo(1, 1.6);
+  expect(plant.hoursTruth(0.6 * unit.rated_power_W)).toBeGreaterThan(hours - 1);
+  expect(() => plant.hoursTruth(0)).toThrow(RangeError);
+}
+
 describe('the demonstration plant', () => {
   it('gives every channel of its unit a finite reading, on time', () => {
     const plant = createDemoPlant(unit, { start_ms: 1_000_000_010 });
@@ -195,7 +206,7 @@ describe('the demonstration plant', () => {
     expect(run(4).at(-1)!.values.hot_axis_01).not.toBe(run(3).at(-1)!.values.hot_axis_01);
   });
 
-  it('charges, stands and discharges in turn; dust spreads a front on its second cycle and a thermocouple sticks on its third', () => {
+  it('charges, stands and discharges in turn; dust spreads a front on its second cycle and a thermocouple sticks on its third; true hours are as long as a discharge at that power lasts', () => {
     const plant = createDemoPlant(unit);
     const modes: string[] = [];
     let dusty = plant.truth();
@@ -215,6 +226,8 @@ describe('the demonstration plant', () => {
     expect(modes.slice(0, 9)).toEqual([...turn, ...turn, 'charge']);
 
     const clean = createDemoPlant(unit, { incidents: false });
+    runUntil(clean, 20, () => clean.truth().mode === 'discharge');
+    knowsItsHours(clean);
     while (clean.time_ms < dusty.time_ms) clean.step();
     const sound = clean.truth().stores.cold!;
     expect(sound.heat_transfer_factor).toBeGreaterThan(0.85);
@@ -231,19 +244,6 @@ describe('the demonstration plant', () => {
     expect(Math.abs(moved)).toBeGreaterThan(5);
     // Two plants over thirty plant hours each: seconds of computing, more on a busy machine.
   }, 120_000);
-
-  it('knows its true hours: a discharge at that power lasts as long', () => {
-    const plant = createDemoPlant(unit, { incidents: false });
-    runUntil(plant, 20, () => plant.truth().mode === 'discharge');
-    const hours = plant.hoursTruth(unit.rated_power_W);
-    const before = plant.truth();
-    for (let n = 0; n < 3600 / unit.scan_period_s; n++) plant.step();
-    expect(before.mode).toBe('discharge');
-    // An hour later at the same power an hour less is left; both are counted in half minutes.
-    expect(hours - plant.hoursTruth(unit.rated_power_W)).toBeCloseTo(1, 1.6);
-    expect(plant.hoursTruth(0.6 * unit.rated_power_W)).toBeGreaterThan(hours - 1);
-    expect(() => plant.hoursTruth(0)).toThrow(RangeError);
-  });
 
   it('leaves a channel out that reports by exception and has not moved', () => {
     const quiet: UnitDefinition = {
