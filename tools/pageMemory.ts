@@ -35,6 +35,8 @@ const { values } = parseArgs({
 const SAMPLES = 10;
 const WARM_FURTHER_H = 0.5;
 const SHARE = 0.05;
+/** A machine that is busy with the plant answers late [ms]. */
+const PATIENT_MS = 180_000;
 
 interface Sample {
   readonly hour: number;
@@ -145,6 +147,7 @@ const browser = await openBrowser(program);
 let holds = true;
 try {
   const page = await browser.newPage({ viewport: { width: 1280, height: 800 } });
+  page.setDefaultTimeout(PATIENT_MS);
   page.on('console', (said) => process.stderr.write(`console: ${said.text()}\n`));
   await page.goto(url);
   await page.waitForSelector('#freshness[data-trust^="live"], #freshness[data-trust="degraded"]');

@@ -57,6 +57,7 @@ const only = values.only?.split(',');
 const root = fileURLToPath(new URL('..', import.meta.url));
 const out = values.out ?? (values.readme ? `${root}fixtures/screens` : `${root}.screens`);
 
+const PATIENT_MS = 180_000;
 const program =
   findProgram(PROGRAMS.chromium.names) ??
   refuse(`This needs Chromium: install the package ${PROGRAMS.chromium.package}.`);
@@ -72,6 +73,8 @@ try {
     await plant?.silence(1);
   }
   const context = await browser.newContext({ viewport: { width: 1280, height: 800 } });
+  // A machine that is busy with the plant answers late, but it answers.
+  context.setDefaultTimeout(PATIENT_MS);
   const page = await context.newPage();
   const open = watchRequests(page);
   page.on('console', (said) => process.stderr.write(`console: ${said.text()}\n`));
@@ -95,7 +98,7 @@ async function fastForward() {
 }
 
 async function allPictures(page: Page, open: () => number): Promise<void> {
-  const places = (await placesOf(page)).filter(({ path }) => only?.includes(path) ?? true);
+  const places = (await placesOf(page, open)).filter(({ path }) => only?.includes(path) ?? true);
   shown?.start(places.length, 0, { what: 'sheets and parts' });
   for (const { path, name } of places) {
     await goTo(page, path);

@@ -45,7 +45,7 @@ export async function goTo(page: Page, path: string): Promise<void> {
 }
 
 /** All sheets and their parts, as the page itself has links to them. */
-export async function placesOf(page: Page): Promise<Place[]> {
+export async function placesOf(page: Page, open: () => number): Promise<Place[]> {
   const links = (within: string) =>
     page
       .locator(`${within} a[href^="#"]`)
@@ -53,7 +53,7 @@ export async function placesOf(page: Page): Promise<Place[]> {
   const paths: string[] = [];
   for (const sheet of await links('#sheets')) {
     await goTo(page, sheet);
-    await page.waitForSelector('main nav, main section');
+    await settled(page, open);
     const parts = (await links('main nav')).filter((path) => path.startsWith(`${sheet}/`));
     // A sheet with parts opens at its first one.
     paths.push(...(parts.length > 0 ? parts : [sheet]));
