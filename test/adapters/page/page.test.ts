@@ -7,6 +7,8 @@ import { ScriptedPlant } from '../http/scriptedPlant.js';
 import { buildPage, field, openBrowser, openPage, type Served, serve } from './browser.js';
 import { freezingProxy } from './freezingProxy.js';
 
+/** Questions about the time ahead are asked at most every two seconds. */
+const SLOWLY = { timeout: 10_000 };
 const chromium = requireProgram('chromium');
 
 describe.skipIf(!chromium)('the page, in a real browser', { timeout: 30_000 }, () => {
@@ -314,7 +316,7 @@ describe.skipIf(!chromium)('the page, in a real browser', { timeout: 30_000 }, (
     );
     plant.step();
     const after = (await plant.hours('north', [1.4])).answers[0]!.energy_MWh_el.p50.toFixed(2);
-    await expect.poll(() => field(page, 'energy-p50', p50).textContent()).toBe(after);
+    await expect.poll(() => field(page, 'energy-p50', p50).textContent(), SLOWLY).toBe(after);
     expect(await field(page, 'asked-stale', '#hours').textContent()).toBe('');
     // A power that the machine does not have is answered with that word.
     await page.fill('#power', '3.5');
@@ -344,15 +346,15 @@ describe.skipIf(!chromium)('the page, in a real browser', { timeout: 30_000 }, (
     for (const wrong of ['', 'two', '0', '-1', '1e3']) {
       await page.fill('#power', wrong);
       await page.keyboard.press('Enter');
-      expect(await page.locator('#power-fault').textContent()).toBe(
-        `A power in MW is a number above 0, as in 1.8; "${wrong}" is not.`,
-      );
+      await expect
+        .poll(() => page.locator('#power-fault').textContent(), SLOWLY)
+        .toBe(`A power in MW is a number above 0, as in 1.8; "${wrong}" is not.`);
     }
     expect(await page.locator('#power').getAttribute('aria-invalid')).toBe('true');
     await page.fill('#power', '99999');
     await page.keyboard.press('Enter');
     await expect
-      .poll(() => page.locator('#power-fault').textContent())
+      .poll(() => page.locator('#power-fault').textContent(), SLOWLY)
       .toMatch(/power_MW is "99999"; expected 1 to 8 powers/);
     expect(await page.locator('.asked li').count()).toBe(0);
   });

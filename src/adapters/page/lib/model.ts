@@ -13,6 +13,8 @@ export interface UnitEntry {
   readonly age_s: number | null;
   readonly aged_ms: number;
   readonly stale: boolean;
+  /** At which of the configured powers the firm figures of all units are told [MW]. */
+  readonly firmPower_MW: number | null;
 }
 
 /**
@@ -48,7 +50,7 @@ export class PageModel {
       const before = this.units.value;
       this.units.value = list.units.map((summary) => {
         const known = before.find((entry) => entry.unit === summary.unit);
-        const { unit, name, age_s, stale } = summary;
+        const { unit, name, age_s, stale, dispatchable } = summary;
         return {
           unit,
           name,
@@ -57,6 +59,7 @@ export class PageModel {
           age_s,
           aged_ms: performance.now(),
           stale,
+          firmPower_MW: dispatchable?.power_MW ?? known?.firmPower_MW ?? null,
         };
       });
       if (this.unit.value === null) this.selected.value = this.units.value[0]?.unit ?? null;

@@ -109,6 +109,7 @@ export interface UnitSummary {
   name: string;
   age_s: number | null;
   stale: boolean;
+  dispatchable: { power_MW: number } | null;
 }
 
 export interface UnitList {

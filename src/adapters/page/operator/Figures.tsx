@@ -11,9 +11,9 @@ import {
 } from '../lib/format.js';
 import type { UnitEntry } from '../lib/model.js';
 import type { AskedHeadroom, AskedHours } from '../lib/wire.js';
+import { ChargeBar } from '../parts/ChargeBar.js';
 import { Unit } from '../parts/Unit.js';
 import { nearestToRated } from './asked.js';
-import { ChargeBar } from './ChargeBar.js';
 
 /** Flow and power are positive while charging: what the sign means, in words. */
 export function bySign(

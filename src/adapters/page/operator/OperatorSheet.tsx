@@ -1,6 +1,7 @@
 import { Beds } from '../drawing/Beds.js';
 import type { UnitEntry } from '../lib/model.js';
 import { model } from '../lib/page.js';
+import { viewport } from '../parts/viewport.js';
 import { Alarms } from './alarms/Alarms.js';
 import { useHeadroom, usePresentHours } from './asked.js';
 import { Figures } from './Figures.js';
@@ -8,6 +9,7 @@ import { HistoryCharts } from './HistoryCharts.js';
 import { Hours } from './Hours.js';
 import { Legend } from './Legend.js';
 import { StoreView } from './StoreView.js';
+import { VerdictLine } from './VerdictLine.js';
 
 /** Is all well, and how long still? */
 export function OperatorSheet() {
@@ -17,6 +19,7 @@ export function OperatorSheet() {
   const key = entry?.unit ?? '';
   return (
     <>
+      <VerdictLine />
       <Figures entry={entry} present={present} headroom={headroom} />
       <Alarms />
       <Hours key={`hours ${key}`} entry={entry} present={present} />
@@ -26,14 +29,20 @@ export function OperatorSheet() {
   );
 }
 
+/** What stands above the beds and below them, in sizes of type and in pixels. */
+const AROUND_REM = 27;
+const AROUND_PX = 70;
+
 function Stores({ entry }: { entry: UnitEntry }) {
+  const { height, rem } = viewport.value;
+  const bedHeight = Math.round(Math.min(900, Math.max(280, height - AROUND_REM * rem - AROUND_PX)));
   const stores = entry.definition?.stores ?? [];
   return (
     <section id="stores" aria-labelledby="stores-head" tabIndex={-1}>
       <h2 id="stores-head">Stores</h2>
       <Beds
         stores={stores}
-        bedHeight={370}
+        bedHeight={bedHeight}
         each={(store, space) => (
           <StoreView key={store.id} entry={entry} store={store} all={stores} space={space} />
         )}

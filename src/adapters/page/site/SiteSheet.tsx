@@ -1,4 +1,130 @@
-/** Sheet. */
+import { isOpen } from '../lib/alarmOrder.js';
+import { ageText, DASH, fixed, hoursText, MODE_WORDS, percent, power } from '../lib/format.js';
+import { ageNow, type UnitEntry } from '../lib/model.js';
+import { model, select } from '../lib/page.js';
+import { hrefOf } from '../lib/route.js';
+import { isOld, TRUST_WORDS, trustOf } from '../lib/trust.js';
+import { verdictOf } from '../lib/verdict.js';
+import { ChargeBar } from '../parts/ChargeBar.js';
+import { Unit } from '../parts/Unit.js';
+import { VerdictSign } from '../parts/VerdictSign.js';
+import { siteVerdict, verdictsOf } from './siteVerdict.js';
+
+/** Up to so many units the rows are tall, and beyond so many as low as they may be. */
+const FEW = 6;
+const MANY = 16;
+
+function goTo(event: MouseEvent, unit: string): void {
+  if (event.ctrlKey || event.metaKey || event.shiftKey) return;
+  event.preventDefault();
+  select(unit);
+  location.hash = hrefOf('now');
+}
+
+/** All units at one look: a row for each, always in the same place. */
 export function SiteSheet() {
-  return <h1>All units</h1>;
+  const units = model.units.value;
+  const size = units.length <= FEW ? 'few' : units.length <= MANY ? 'some' : 'many';
+  const told = siteVerdict(verdictsOf(model.connection.value, units, model.standing.value));
+  return (
+    <section id="all-units" aria-labelledby="all-units-head" data-size={size}>
+      <h2 id="all-units-head">All units</h2>
+      <div id="verdict" role="status" data-level={told.level}>
+        <VerdictSign level={told.level} />
+        <p>
+          <strong data-field="verdict">{told.words}</strong>
+          <span class="because">{told.because}</span>
+        </p>
+      </div>
+      <table class="units">
+        <thead>
+          <tr>
+            <th scope="col">Unit</th>
+            <th scope="col">Mode</th>
+            <th scope="col" colSpan={2}>
+              State of charge
+            </th>
+            <th scope="col" class="number">
+              Firm hours
+            </th>
+            <th scope="col" class="number">
+              Firm
+              <Unit name="MWh_el" />
+            </th>
+            <th scope="col" class="number">
+              Net
+              <Unit name="MW_el" />
+            </th>
+            <th scope="col">Is all well?</th>
+            <th scope="col" class="number">
+              Age
+            </th>
+          </tr>
+        </thead>
+        <tbody>
+          {units.map((entry) => (
+            <UnitRow key={entry.unit} entry={entry} />
+          ))}
+        </tbody>
+      </table>
+    </section>
+  );
+}
+
+function UnitRow({ entry }: { entry: UnitEntry }) {
+  const trust = trustOf(model.connection.value, entry);
+  const own = model.standing.value.filter((event) => event.unit === entry.unit);
+  const { level, words } = verdictOf(trust, entry, own);
+  const estimate = entry.state?.estimate ?? null;
+  const charge = estimate?.state_of_charge ?? null;
+  const answers = entry.state?.dispatch?.answers ?? [];
+  const firm = answers.find((one) => one.power_MW === entry.firmPower_MW) ?? answers[0] ?? null;
+  const delivered = entry.state?.power_MW_el ?? null;
+  const open = own.filter(isOpen).length;
+  return (
+    <tr data-unit-row={entry.unit} data-level={level} data-old={isOld(trust) ? '' : undefined}>
+      <th scope="row">
+        <a
+          href={`?unit=${encodeURIComponent(entry.unit)}${hrefOf('now')}`}
+          onClick={(event) => goTo(event, entry.unit)}
+        >
+          {entry.name}
+        </a>
+      </th>
+      <td data-cell="mode">{estimate === null ? DASH : MODE_WORDS[estimate.mode]}</td>
+      <td class="bar-cell">
+        <ChargeBar charge={charge} />
+      </td>
+      <td class="number" data-cell="soc">
+        {percent(charge, 0)}
+        <Unit name="%" />
+      </td>
+      <td class="number" data-cell="hours">
+        {hoursText(firm?.hours.p90)}
+        {firm !== null && <small>{`at ${power(firm.power_MW)} MW`}</small>}
+      </td>
+      <td class="number" data-cell="energy">
+        {fixed(firm?.energy_MWh_el.p90, 1)}
+      </td>
+      <td class="number" data-cell="power">
+        {fixed(delivered, 2)}
+      </td>
+      <td class="well" data-cell="well">
+        <VerdictSign level={level} />
+        <span>{level === 'unknown' ? TRUST_WORDS[trust] : words}</span>
+        {open > 1 && <span class="p">{`${open} to acknowledge`}</span>}
+      </td>
+      <Age entry={entry} />
+    </tr>
+  );
+}
+
+/** On its own, so that a second's tick draws an age and no row. */
+function Age({ entry }: { entry: UnitEntry }) {
+  const age_s = ageNow(entry, model.tick_ms.value);
+  return (
+    <td class="number" data-cell="age">
+      {age_s === null ? DASH : ageText(age_s)}
+    </td>
+  );
 }

@@ -1,5 +1,6 @@
 import { ALARM_STATE_WORDS, isOpen } from '../../lib/alarmOrder.js';
-import { clock, dateClock, hoursText } from '../../lib/format.js';
+import { dateClock, hoursText } from '../../lib/format.js';
+import { actWords } from '../../lib/verdict.js';
 import type { Standing } from '../../lib/wire.js';
 import { command, type HidingAction } from './commands.js';
 
@@ -14,16 +15,6 @@ function Sign({ event }: { event: Standing }) {
       </text>
     </svg>
   );
-}
-
-/** How long there is to act, against the time of the newest estimate. */
-export function actWords({ act_by }: Standing, now: string | undefined): string | null {
-  if (act_by === undefined) return null;
-  const left_h = now === undefined ? null : (Date.parse(act_by) - Date.parse(now)) / 3.6e6;
-  if (left_h === null) return `act by ${clock(act_by)}`;
-  return left_h > 0
-    ? `act by ${clock(act_by)}, in ${hoursText(left_h)}`
-    : `to be acted on until ${clock(act_by)}, which is over`;
 }
 
 /** @param now time of the newest estimate of its unit */

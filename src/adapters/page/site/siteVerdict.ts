@@ -1,0 +1,45 @@
+import { counted } from '../lib/alarmOrder.js';
+import type { Connection, UnitEntry } from '../lib/model.js';
+import { trustOf } from '../lib/trust.js';
+import { type Level, type Verdict, verdictOf } from '../lib/verdict.js';
+import type { Standing } from '../lib/wire.js';
+
+export interface UnitVerdict extends Verdict {
+  readonly name: string;
+}
+
+const ORDER: readonly Level[] = ['urgent', 'unknown', 'care', 'known', 'well'];
+/** So many units are named; of more the number is told. */
+const NAMED = 4;
+
+export function verdictsOf(
+  connection: Connection,
+  units: readonly UnitEntry[],
+  standing: readonly Standing[],
+): UnitVerdict[] {
+  return units.map((entry) => {
+    const own = standing.filter((event) => event.unit === entry.unit);
+    return { name: entry.name, ...verdictOf(trustOf(connection, entry), entry, own) };
+  });
+}
+
+/** The worst of all units in a few words, and which units it is about. */
+export function siteVerdict(all: readonly UnitVerdict[]): Verdict {
+  const worst = ORDER.find((level) => all.some((one) => one.level === level)) ?? 'unknown';
+  if (all.length === 0) return { level: worst, words: 'No units yet.', because: '' };
+  const well = all.filter(({ level }) => level === 'well' || level === 'known').length;
+  const words = `${well} of ${counted(all.length, 'unit')} as they should be.`;
+  const asked = ORDER.slice(0, 3).flatMap((level) => all.filter((one) => one.level === level));
+  if (asked.length === 0) {
+    const known = all.filter(({ level }) => level === 'known').map(({ name }) => name);
+    const because = known.length === 0 ? 'Nothing stands.' : `Acknowledged at ${known.join(', ')}.`;
+    return {
+      level: worst,
+      words: `All ${counted(all.length, 'unit')} as they should be.`,
+      because,
+    };
+  }
+  const named = asked.slice(0, NAMED).map(({ name, words: what }) => `${name}: ${what}`);
+  const rest = asked.length > NAMED ? [`and ${asked.length - NAMED} more`] : [];
+  return { level: worst, words, because: [...named, ...rest].join(' · ') };
+}
