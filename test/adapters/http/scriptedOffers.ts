@@ -7,7 +7,11 @@ import type { Offer } from '../../../src/core/plan/offers.js';
  * of waiting loses 0.4 % and widens that by 0.6 %. Above 3 MW nothing is offered.
  */
 export function scriptedOffers(ask: OffersAsk, now_ms: number, charge_MWh: number): Offer[] {
-  const starts = ask.starts_ms ?? [now_ms + (ask.gate?.closes_before_s ?? 0) * 1000];
+  const { gate } = ask;
+  const begin_ms = now_ms + (gate?.closes_before_s ?? 0) * 1000;
+  const starts =
+    ask.starts_ms ??
+    Array.from({ length: gate?.count ?? 1 }, (_, i) => begin_ms + i * (gate?.every_s ?? 0) * 1000);
   return starts.flatMap((start_ms) =>
     ask.powers_W.map((power_W): Offer => {
       const start_s = (start_ms - now_ms) / 1000;

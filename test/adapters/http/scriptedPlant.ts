@@ -452,7 +452,7 @@ export class ScriptedPlant implements PlantService {
     const hours = ['p90', 'p50', 'p10'].flatMap((level) =>
       [1, 2].map((power) => `hours_${level}_at_${power}_MW`),
     );
-    return ['state_of_charge', ...hours, 'quality'];
+    return ['state_of_charge', ...hours, 'quality', 'state_of_charge.min', 'state_of_charge.max'];
   }
 
   /** Hours only in every fifth row, as the daemon works them out less often than it scans. */

@@ -1,5 +1,5 @@
 import { z } from 'zod';
-import { INDICATOR_KINDS } from '../../../core/watch/indicator.js';
+import { INDICATOR_KINDS, type IndicatorKind } from '../../../core/watch/indicator.js';
 import { estimateSchema, storeProfileSchema, timeSchema } from './estimate.js';
 import { count, instant } from './questions.js';
 
@@ -28,6 +28,10 @@ export const profilesQuery = z.strictObject({
 
 const KINDS = `some of ${INDICATOR_KINDS.join(', ')}, separated by commas`;
 
+function isKind(text: string): text is IndicatorKind {
+  return (INDICATOR_KINDS as readonly string[]).includes(text);
+}
+
 export const watchHistoryQuery = z.strictObject({
   from: instant.optional(),
   to: instant.optional(),
@@ -35,8 +39,12 @@ export const watchHistoryQuery = z.strictObject({
   kinds: z
     .string({ error: KINDS })
     .describe(KINDS)
-    .transform((text) => text.split(',').map((kind) => kind.trim()))
-    .pipe(z.array(z.enum(INDICATOR_KINDS, { error: KINDS })))
+    .transform((text, context) => {
+      const kinds = text.split(',').map((kind) => kind.trim());
+      if (kinds.every(isKind)) return kinds;
+      context.addIssue({ code: 'custom', message: KINDS });
+      return z.NEVER;
+    })
     .optional(),
 });
 
