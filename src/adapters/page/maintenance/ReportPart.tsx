@@ -1,4 +1,4 @@
-import { useState } from 'preact/hooks';
+import { useRef, useState } from 'preact/hooks';
 import { api, model } from '../lib/page.js';
 import { localField } from './moments.js';
 
@@ -14,11 +14,12 @@ const TABLES = {
 
 /** The report for a span of time: findings first, one file that can be kept and sent on. */
 export function ReportPart({ unit }: { unit: string }) {
-  const [span, setSpan] = useState(() => {
-    const time = model.unit.peek()?.state?.estimate?.time;
-    const to = time === undefined ? Date.now() : Date.parse(time);
-    return { from: localField(to - DAYS * DAY_MS), to: localField(to) };
-  });
+  const [chosen, setSpan] = useState<Span | null>(null);
+  // The span ends with the newest estimate of when the part was opened, or of when there was one.
+  const opened = useRef<Span | null>(null);
+  const time = model.unit.value?.state?.estimate?.time;
+  if (opened.current === null && time !== undefined) opened.current = monthBefore(Date.parse(time));
+  const span = chosen ?? opened.current ?? monthBefore(Date.now());
   const fault = faultOf(span);
   const query = fault === null ? { from: isoOf(span.from), to: isoOf(span.to) } : {};
   const href = (more: Record<string, string>) =>
@@ -70,6 +71,16 @@ export function ReportPart({ unit }: { unit: string }) {
     </>
   );
 }
+
+interface Span {
+  readonly from: string;
+  readonly to: string;
+}
+
+const monthBefore = (to_ms: number): Span => ({
+  from: localField(to_ms - DAYS * DAY_MS),
+  to: localField(to_ms),
+});
 
 const isoOf = (field: string) => new Date(field).toISOString();
 

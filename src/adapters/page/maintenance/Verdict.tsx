@@ -64,7 +64,10 @@ function headline(watch: Watch | null, changed: readonly Indicator[], name: stri
     return `Changed since healthy: ${places.join(' and ')}`;
   }
   if (standings.includes('open')) return 'Nothing is decided, but something may be changing';
-  if (!standings.includes('healthy')) return 'Not known yet: the healthy values are being learned';
+  const known = standings.filter((one) => one === 'healthy').length;
+  if (known === 0) return 'Not known yet: the healthy values are being learned';
+  if (known < standings.length / 2)
+    return 'Nothing seen that has changed, but most is not known yet';
   return 'Nothing has changed since healthy';
 }
 

@@ -99,6 +99,7 @@ function labelLines(chart: uPlot, lines: readonly Line[], ink: string): void {
   ctx.save();
   ctx.font = `${12 * ratio}px system-ui, sans-serif`;
   ctx.fillStyle = ink;
+  ctx.textAlign = 'left';
   ctx.textBaseline = 'middle';
   for (const { label, y } of places) ctx.fillText(label, left + width + 6 * ratio, y);
   ctx.restore();
