@@ -9,7 +9,14 @@ import type {
   unitHoursSchema,
   unitListSchema,
 } from '../../../src/adapters/http/schema/answers.js';
+import type { capabilitySchema } from '../../../src/adapters/http/schema/capability.js';
+import type {
+  offersHistorySchema,
+  offersReportSchema,
+  offersSchema,
+} from '../../../src/adapters/http/schema/offers.js';
 import type { headroomSchema } from '../../../src/adapters/http/schema/plan.js';
+import type { scheduleSchema } from '../../../src/adapters/http/schema/schedule.js';
 import type {
   AlarmLists,
   AskedHeadroom,
@@ -22,6 +29,7 @@ import type {
   UnitDefinition,
   UnitList,
 } from '../../../src/adapters/page/lib/wire.js';
+import type * as Trade from '../../../src/adapters/page/trader/wire.js';
 
 /**
  * What the server sends is what the page reads. The page may not import from the HTTP adapter, so
@@ -40,4 +48,11 @@ export type Contract = [
   Sends<z.output<typeof alarmEntrySchema>, Standing>,
   Sends<z.output<typeof alarmsSchema>, AlarmLists>,
   Sends<z.output<typeof eventsSchema>['events'][number], Told>,
+  Sends<UnitNowView['definition'], Trade.TraderDefinition>,
+  Sends<z.output<typeof offersSchema>, Trade.OfferTable>,
+  Sends<z.output<typeof offersHistorySchema>, Trade.KeptTables>,
+  Sends<z.output<typeof offersReportSchema>, Trade.OfferReport>,
+  Sends<z.output<typeof scheduleSchema>, Trade.ScheduleCheck>,
+  Sends<z.output<typeof headroomSchema>, Trade.Headroom>,
+  Sends<z.output<typeof capabilitySchema>, Trade.Capability>,
 ];

@@ -123,10 +123,10 @@ function Drawing({
           ),
       )}
       <line class="zero" x1={frame.left} x2={width - frame.right} y1={y(0)} y2={y(0)} />
-      <text x={x(from) + 8} y={frame.top + 14}>
+      <text x={x(from) + 8} y={y(0) - 10}>
         gives
       </text>
-      <text x={x(from) + 8} y={HEIGHT - frame.bottom - 8}>
+      <text x={x(from) + 8} y={y(0) + 20}>
         takes
       </text>
       <g class="present">

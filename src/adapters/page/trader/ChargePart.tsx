@@ -5,6 +5,7 @@ import { api, model } from '../lib/page.js';
 import { Unit } from '../parts/Unit.js';
 import { Asking } from './asking.js';
 import { CapabilityPicture } from './CapabilityPicture.js';
+import { Scrolled } from './Scrolled.js';
 import { Awaited, StandsOn } from './Standing.js';
 import { Field } from './TableForm.js';
 import { csvOf, Take, tabsOf } from './Take.js';
@@ -46,7 +47,8 @@ export function ChargePart() {
   const unit = entry?.unit ?? '';
   const known = entry?.state?.estimate != null;
   const asked = headroomAsking.of(unit);
-  const fresh = asked.answer === null && asked.since_ms === null && asked.fault === null;
+  // Never by itself again: not after a fault, nor after somebody gave up.
+  const fresh = asked.unit === null;
   const ask = (text: string) => {
     const read = readPowers(text);
     setFault(typeof read === 'string' ? read : null);
@@ -113,8 +115,7 @@ function HeadroomView({ headroom }: { headroom: Headroom }) {
   const one = answers.find(({ power_MW_el }) => power_MW_el === chosen.value) ?? answers[0];
   return (
     <div class="charge-view">
-      {/* biome-ignore lint/a11y/noNoninteractiveTabindex: scrolls by keys where it is wider than a phone */}
-      <section class="scrolled" tabIndex={0} aria-label="What can still be charged">
+      <Scrolled label="What can still be charged">
         <table class="plain roomy">
           <caption>
             Large: MWh<sub>el</sub> it takes from the grid at least, firm (nine in ten); then how
@@ -125,7 +126,7 @@ function HeadroomView({ headroom }: { headroom: Headroom }) {
               <th scope="col">at</th>
               <th scope="col">firm</th>
               <th scope="col">for</th>
-              <th scope="col">even · hopeful</th>
+              <th scope="col">p50 · p10</th>
               <th scope="col">ends by</th>
             </tr>
           </thead>
@@ -149,7 +150,7 @@ function HeadroomView({ headroom }: { headroom: Headroom }) {
             ))}
           </tbody>
         </table>
-      </section>
+      </Scrolled>
       <TradePicture
         points={answers
           .filter(({ refused }) => refused === null)
@@ -186,7 +187,7 @@ function HeadroomCells({ answer }: { answer: HeadroomAnswer }) {
       <td>
         <strong data-field="headroom">{fixed(energy_MWh_el.p90, 2)}</strong>
       </td>
-      <td>{hoursText(hours.p90)}</td>
+      <td class="whole">{hoursText(hours.p90)}</td>
       <td>
         {fixed(energy_MWh_el.p50, 2)} · {fixed(energy_MWh_el.p10, 2)}
       </td>

@@ -1,5 +1,6 @@
 import { fixed, hoursText, power } from '../lib/format.js';
 import { Unit } from '../parts/Unit.js';
+import { Scrolled } from './Scrolled.js';
 import { shortTime } from './times.js';
 import type { Offer, OfferTable } from './wire.js';
 import { causeWords, certaintyWords } from './words.js';
@@ -34,8 +35,7 @@ export function OfferMatrix({
   const time_ms = Date.parse(table.time);
   const starts = startsOf(table);
   return (
-    // biome-ignore lint/a11y/noNoninteractiveTabindex: a table wider than a phone scrolls by keys, too
-    <section class="scrolled" tabIndex={0} aria-label="Offers by power and start">
+    <Scrolled label="Offers by power and start">
       <table class="matrix">
         <caption>
           Large: MWh<sub>el</sub> that are {certaintyWords(certainty)}, and for how long; small:
@@ -79,7 +79,7 @@ export function OfferMatrix({
           ))}
         </tbody>
       </table>
-    </section>
+    </Scrolled>
   );
 }
 
@@ -105,7 +105,8 @@ function Cell({
           <strong data-field="energy">{fixed(at?.energy_MWh_el, 2)}</strong>
           <span data-field="hours">{hoursText(at?.hours)}</span>
           <small>
-            {fixed(offer.energy_MWh_el.p50, 2)} · {fixed(offer.energy_MWh_el.p10, 2)}
+            <span>p50 {fixed(offer.energy_MWh_el.p50, 2)}</span>{' '}
+            <span>p10 {fixed(offer.energy_MWh_el.p10, 2)}</span>
           </small>
           {offer.limited.length > 0 && <small class="limited">▲ limited</small>}
         </>

@@ -1,7 +1,7 @@
 import { fixed, percent } from '../lib/format.js';
 import { useWidth } from '../parts/useWidth.js';
 import { Axes } from './Axes.js';
-import { type Frame, roundMarks, scaleOf } from './picture.js';
+import { type Frame, scaleOf } from './picture.js';
 import { wallOf } from './times.js';
 import type { KeptShare, TestedOffer } from './wire.js';
 
@@ -63,7 +63,10 @@ export function SharePicture({ rows }: { rows: readonly { name: string; kept: Ke
 const HEIGHT = 280;
 const MOST = 60;
 
-/** Each discharge that put a promise to the test: what was said as a range, what was given as a mark. */
+/**
+ * Each discharge that put a promise to the test, against its firm figure: the range that was said as an
+ * open box, what was given as a mark.
+ */
 export function DeliveredPicture({
   tested,
   zone,
@@ -73,15 +76,16 @@ export function DeliveredPicture({
 }) {
   const { ref, width } = useWidth<HTMLDivElement>();
   const shown = [...tested].sort((a, b) => a.begins.localeCompare(b.begins)).slice(-MOST);
-  const most = Math.max(
-    1,
-    ...shown.map(({ energy_MWh_el, delivered_MWh_el }) =>
-      Math.max(energy_MWh_el.p10, delivered_MWh_el),
-    ),
-  );
-  const up = roundMarks(most * 1.05, 4);
+  const shares = shown.flatMap((one) => [shareOf(one), one.energy_MWh_el.p10 / firmOf(one)]);
+  const most = Math.ceil(Math.max(1.1, ...shares) * 20) * 5;
+  const least = Math.floor(Math.min(0.9, ...shares) * 20) * 5;
+  const step = most - least > 60 ? 20 : most - least > 30 ? 10 : 5;
+  const up = Array.from({ length: Math.floor((most - least) / step) + 1 }, (_, i) => {
+    const mark = Math.ceil(least / step) * step + i * step;
+    return [mark, `${mark}`] as const;
+  }).filter(([mark]) => mark <= most);
   const frame: Frame = { width, height: HEIGHT, left: 36, right: 8, top: 26, bottom: 28 };
-  const y = scaleOf([0, up.at(-1)!], [HEIGHT - frame.bottom, frame.top]);
+  const y = scaleOf([least, most], [HEIGHT - frame.bottom, frame.top]);
   const x = scaleOf([-0.5, Math.max(3, shown.length) - 0.5], [frame.left, width - frame.right]);
   const wide = Math.min(26, (x(1) - x(0)) * 0.6);
   const every = Math.ceil(shown.length / Math.max(2, Math.floor(width / 70)));
@@ -89,8 +93,8 @@ export function DeliveredPicture({
   return (
     <figure class="picture">
       <figcaption>
-        What was said and what was given: filled up to the firm figure (p90), open from there to the
-        hopeful one (p10), ◆ given, ▼ given less than firm
+        What was given, against the firm figure (p90, the strong line): the box reaches to the
+        hopeful one (p10), its dashes are the even one (p50); ◆ given, ▼ less than firm
       </figcaption>
       <div ref={ref}>
         {width > 0 && (
@@ -101,12 +105,18 @@ export function DeliveredPicture({
             aria-label={`${shown.length} discharges, ${short} of them short of the firm figure`}
           >
             <Axes
-              {...{ frame, x, y }}
-              up={up.map((value) => [value, `${value}`])}
+              {...{ frame, x, y, up }}
               across={shown.flatMap((one, i) =>
                 i % every === 0 ? [[i, wallOf(zone, one.begins).date.slice(5)] as const] : [],
               )}
-              upName="MWh el"
+              upName="% of the firm MWh el"
+            />
+            <line
+              class="promise"
+              x1={frame.left}
+              x2={width - frame.right}
+              y1={y(100)}
+              y2={y(100)}
             />
             {shown.map((one, i) => (
               <Delivered key={one.begins + one.no} {...{ one, wide, y }} at={x(i)} />
@@ -117,6 +127,9 @@ export function DeliveredPicture({
     </figure>
   );
 }
+
+const firmOf = ({ energy_MWh_el }: TestedOffer): number => Math.max(1e-6, energy_MWh_el.p90);
+const shareOf = (one: TestedOffer): number => one.delivered_MWh_el / firmOf(one);
 
 function Delivered({
   one,
@@ -129,19 +142,19 @@ function Delivered({
   wide: number;
   y(value: number): number;
 }) {
-  const { p90, p50, p10 } = one.energy_MWh_el;
+  const { p50, p10 } = one.energy_MWh_el;
+  const of = (MWh: number) => y((100 * MWh) / firmOf(one));
   const left = at - wide / 2;
-  const given = y(one.delivered_MWh_el);
+  const given = of(one.delivered_MWh_el);
   const r = Math.min(7, Math.max(4, wide * 0.3));
   const mark = one.kept.p90
     ? `M${at} ${given - r}L${at + r} ${given}L${at} ${given + r}L${at - r} ${given}Z`
     : `M${at - r} ${given - r}L${at + r} ${given - r}L${at} ${given + r}Z`;
   return (
     <g>
-      <title>{`${fixed(one.delivered_MWh_el, 2)} of firm ${fixed(p90, 2)} MWh el`}</title>
-      <rect class="energy" x={left} width={wide} y={y(p90)} height={y(0) - y(p90)} />
-      <rect class="open" x={left} width={wide} y={y(p10)} height={y(p90) - y(p10)} />
-      <line class="middle" x1={left} x2={left + wide} y1={y(p50)} y2={y(p50)} />
+      <title>{`${fixed(one.delivered_MWh_el, 2)} of firm ${fixed(firmOf(one), 2)} MWh el`}</title>
+      <rect class="open" x={left} width={wide} y={of(p10)} height={y(100) - of(p10)} />
+      <line class="middle" x1={left} x2={left + wide} y1={of(p50)} y2={of(p50)} />
       <path class={one.kept.p90 ? 'given' : 'given short'} d={mark} />
     </g>
   );

@@ -7,6 +7,7 @@ import { Choices } from '../parts/Choices.js';
 import { KeptTable } from './KeptTable.js';
 import { sourceNow } from './moved.js';
 import { DeliveredPicture, SharePicture } from './PromisePictures.js';
+import { Scrolled } from './Scrolled.js';
 import { csvOf, Take, tabsOf } from './Take.js';
 import { typedTime, zoneWords } from './times.js';
 import { type KeptShare, type KeptTables, type OfferReport, zoneOf } from './wire.js';
@@ -167,8 +168,7 @@ function Tested({ report, zone }: { report: OfferReport; zone: string | null }) 
   return (
     <details class="long" open={newest.length <= 12}>
       <summary>Each discharge that put a promise to the test</summary>
-      {/* biome-ignore lint/a11y/noNoninteractiveTabindex: scrolls by keys where it is wider than a phone */}
-      <section class="scrolled" tabIndex={0} aria-label="Promises put to the test">
+      <Scrolled label="Promises put to the test">
         <table class="plain">
           <thead>
             <tr>
@@ -207,7 +207,7 @@ function Tested({ report, zone }: { report: OfferReport; zone: string | null }) 
             ))}
           </tbody>
         </table>
-      </section>
+      </Scrolled>
     </details>
   );
 }
@@ -232,8 +232,7 @@ function History({ history, zone }: { history: KeptTables; zone: string | null }
     );
   }
   return (
-    // biome-ignore lint/a11y/noNoninteractiveTabindex: scrolls by keys where it is wider than a phone
-    <section class="scrolled" tabIndex={0} aria-label="Kept tables">
+    <Scrolled label="Kept tables">
       <table class="plain">
         <caption>
           Kept tables, newest first{older_left_out && '; the newest 100, there are more'}; firm
@@ -270,7 +269,7 @@ function History({ history, zone }: { history: KeptTables; zone: string | null }
           })}
         </tbody>
       </table>
-    </section>
+    </Scrolled>
   );
 }
 

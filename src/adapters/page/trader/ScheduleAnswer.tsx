@@ -1,5 +1,6 @@
 import { fixed, hoursText, MODE_WORDS, percent, power } from '../lib/format.js';
 import { Unit } from '../parts/Unit.js';
+import { Scrolled } from './Scrolled.js';
 import { shortTime } from './times.js';
 import type { CheckedRun, ScheduleCheck, Short } from './wire.js';
 import {
@@ -12,22 +13,28 @@ import {
 
 export const MODE_NOUNS = { charge: 'charge', discharge: 'discharge', stand: 'stand' } as const;
 
-/** What came out of the check, in words; the verdict first. */
-export function ScheduleVerdict({ check, zone }: { check: ScheduleCheck; zone: string | null }) {
+/** Whether it holds, at one glance. */
+export function ScheduleVerdict({ check }: { check: ScheduleCheck }) {
   const holds = check.probability >= check.certainty;
+  return (
+    <p class="verdict" role="status" data-holds={holds ? '' : undefined}>
+      <strong data-field="verdict" class={holds ? undefined : 'care'}>
+        {holds ? '● Holds' : '▲ Does not hold'}
+      </strong>{' '}
+      <span>
+        <b data-field="probability">{chance(check.probability)}</b> that all is done as asked;{' '}
+        {certaintyWords(check.certainty)} was asked for
+      </span>
+    </p>
+  );
+}
+
+/** What came out of the check, in words. */
+export function ScheduleFacts({ check, zone }: { check: ScheduleCheck; zone: string | null }) {
   const clock = (time: string) => shortTime(zone, time, Date.parse(check.time));
   const { p50, certain } = check.first_shortfall;
   return (
-    <div class="closely verdict" data-holds={holds ? '' : undefined}>
-      <p class="large" role="status">
-        <strong data-field="verdict" class={holds ? undefined : 'care'}>
-          {holds ? '● Holds' : '▲ Does not hold'}
-        </strong>
-        <span>
-          <b data-field="probability">{chance(check.probability)}</b> that all is done as asked;{' '}
-          {certaintyWords(check.certainty)} was asked for
-        </span>
-      </p>
+    <div class="closely">
       <dl class="facts">
         <dt>First short</dt>
         <dd data-field="first-short">
@@ -145,26 +152,28 @@ export function Nearest({
         {changes.length === 0 ? 'As asked' : changes.join('; ')}. It holds with{' '}
         <b>{chance(nearest.probability)}</b>.
       </p>
-      <table class="plain">
-        <thead>
-          <tr>
-            <th scope="col">from</th>
-            <th scope="col">to</th>
-            <th scope="col">mode</th>
-            <th scope="col">MW</th>
-          </tr>
-        </thead>
-        <tbody>
-          {nearest.blocks.slice(0, 8).map((block) => (
-            <tr key={block.from}>
-              <td>{clock(block.from)}</td>
-              <td>{clock(block.to)}</td>
-              <td>{MODE_NOUNS[block.mode]}</td>
-              <td>{power(block.power_MW_el)}</td>
+      <Scrolled label="Blocks of the nearest schedule">
+        <table class="plain">
+          <thead>
+            <tr>
+              <th scope="col">from</th>
+              <th scope="col">to</th>
+              <th scope="col">mode</th>
+              <th scope="col">MW</th>
             </tr>
-          ))}
-        </tbody>
-      </table>
+          </thead>
+          <tbody>
+            {nearest.blocks.slice(0, 8).map((block) => (
+              <tr key={block.from}>
+                <td>{clock(block.from)}</td>
+                <td>{clock(block.to)}</td>
+                <td>{MODE_NOUNS[block.mode]}</td>
+                <td>{power(block.power_MW_el)}</td>
+              </tr>
+            ))}
+          </tbody>
+        </table>
+      </Scrolled>
       {nearest.blocks.length > 8 && <p>and {nearest.blocks.length - 8} more</p>}
       <p>
         <button type="button" data-action="use-nearest" onClick={onUse}>
@@ -179,8 +188,7 @@ export function Nearest({
 export function BlockTable({ check, zone }: { check: ScheduleCheck; zone: string | null }) {
   const clock = (time: string) => shortTime(zone, time, Date.parse(check.time));
   return (
-    // biome-ignore lint/a11y/noNoninteractiveTabindex: a table wider than a phone scrolls by keys, too
-    <section class="scrolled" tabIndex={0} aria-label="Blocks of the schedule">
+    <Scrolled label="Blocks of the schedule">
       <table class="plain">
         <caption>
           Block by block, MWh<sub>el</sub> in the direction of the block
@@ -220,7 +228,7 @@ export function BlockTable({ check, zone }: { check: ScheduleCheck; zone: string
           ))}
         </tbody>
       </table>
-    </section>
+    </Scrolled>
   );
 }
 

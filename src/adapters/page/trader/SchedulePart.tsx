@@ -4,8 +4,15 @@ import { fixed, MODE_WORDS, power } from '../lib/format.js';
 import { model } from '../lib/page.js';
 import { Choices } from '../parts/Choices.js';
 import { sourceNow } from './moved.js';
-import { BlockTable, Nearest, ScheduleVerdict, scheduleRows } from './ScheduleAnswer.js';
+import {
+  BlockTable,
+  Nearest,
+  ScheduleFacts,
+  ScheduleVerdict,
+  scheduleRows,
+} from './ScheduleAnswer.js';
 import { SchedulePicture } from './SchedulePicture.js';
+import { Scrolled } from './Scrolled.js';
 import { Awaited, StandsOn } from './Standing.js';
 import {
   askedLines,
@@ -68,7 +75,7 @@ export function SchedulePart() {
             <span>Blocks, one a row: from, to, MW (above 0 gives, below 0 takes)</span>
             <textarea
               name="schedule"
-              rows={9}
+              rows={6}
               spellcheck={false}
               value={text}
               placeholder={EXAMPLE}
@@ -134,9 +141,10 @@ export function SchedulePart() {
             </p>
           )}
           <div class="schedule-view">
-            <ScheduleVerdict {...{ check, zone }} />
-            <Nearest {...{ check, zone }} onUse={use} />
+            <ScheduleVerdict check={check} />
             <SchedulePicture {...{ check, zone }} />
+            <ScheduleFacts {...{ check, zone }} />
+            <Nearest {...{ check, zone }} onUse={use} />
             <BlockTable {...{ check, zone }} />
           </div>
           <Take
@@ -202,38 +210,40 @@ function Preview({
         )}
       </ul>
       {blocks.length > 0 && (
-        <table class="plain">
-          <caption>
-            As it is read: {blocks.length} {blocks.length === 1 ? 'block' : 'blocks'}
-          </caption>
-          <thead>
-            <tr>
-              <th scope="col">line</th>
-              <th scope="col">from</th>
-              <th scope="col">to</th>
-              <th scope="col">mode</th>
-              <th scope="col">MW</th>
-              <th scope="col">
-                MWh<sub>el</sub>
-              </th>
-            </tr>
-          </thead>
-          <tbody>
-            {blocks.slice(0, MOST_SHOWN).map((block) => {
-              const hours = hoursOf(block);
-              return (
-                <tr key={block.line}>
-                  <td>{block.line}</td>
-                  <td>{show(block.from)}</td>
-                  <td>{show(block.to)}</td>
-                  <td>{MODE_WORDS[block.mode]}</td>
-                  <td>{power(block.power_MW_el)}</td>
-                  <td>{hours === null ? '–' : fixed(hours * block.power_MW_el, 2)}</td>
-                </tr>
-              );
-            })}
-          </tbody>
-        </table>
+        <Scrolled label="Blocks as they are read">
+          <table class="plain">
+            <caption>
+              As it is read: {blocks.length} {blocks.length === 1 ? 'block' : 'blocks'}
+            </caption>
+            <thead>
+              <tr>
+                <th scope="col">line</th>
+                <th scope="col">from</th>
+                <th scope="col">to</th>
+                <th scope="col">mode</th>
+                <th scope="col">MW</th>
+                <th scope="col">
+                  MWh<sub>el</sub>
+                </th>
+              </tr>
+            </thead>
+            <tbody>
+              {blocks.slice(0, MOST_SHOWN).map((block) => {
+                const hours = hoursOf(block);
+                return (
+                  <tr key={block.line}>
+                    <td>{block.line}</td>
+                    <td>{show(block.from)}</td>
+                    <td>{show(block.to)}</td>
+                    <td>{MODE_WORDS[block.mode]}</td>
+                    <td>{power(block.power_MW_el)}</td>
+                    <td>{hours === null ? '–' : fixed(hours * block.power_MW_el, 2)}</td>
+                  </tr>
+                );
+              })}
+            </tbody>
+          </table>
+        </Scrolled>
       )}
       {blocks.length > MOST_SHOWN && <p>and {blocks.length - MOST_SHOWN} more</p>}
     </div>

@@ -15,8 +15,8 @@ export function SchedulePicture({ check, zone }: { check: ScheduleCheck; zone: s
   return (
     <figure class="picture">
       <figcaption>
-        Power asked for at the connection and the state of charge along it, with what it keeps to in
-        eight of ten
+        Power asked for, with what is not sure enough hatched, and the state of charge along it
+        (grey: eight of ten)
       </figcaption>
       <div ref={ref}>{width > 0 && <Drawing {...{ check, zone, width }} />}</div>
     </figure>
@@ -104,10 +104,21 @@ function Drawing({
           key={`${one.from}${one.cause}`}
           from={x(Date.parse(one.from))}
           to={x(Date.parse(one.to))}
-          between={spanOf(check.blocks[one.block], power)}
+          between={lackOf(check.blocks[one.block], one.missing_MW_el, power)}
         />
       ))}
-      {short !== null && <ShortFrom {...{ check, short, x, power, zone, frame }} />}
+      {check.blocks.map((block) => {
+        const from = unsureFrom(block);
+        return from === null ? null : (
+          <Missing
+            key={block.from}
+            from={x(from)}
+            to={x(Date.parse(block.to))}
+            between={spanOf(block, power)}
+          />
+        );
+      })}
+      {short !== null && <ShortFrom {...{ short, x, zone, frame }} />}
     </svg>
   );
 }
@@ -154,41 +165,44 @@ function Missing({
   );
 }
 
-/** From the first shortfall on to the end of its run, over both pictures, with a word and the time. */
+/** What of a block's power machine, connection or an outage do not allow. */
+function lackOf(
+  block: CheckedBlock | undefined,
+  missing_MW: number,
+  power: Scale,
+): [number, number] {
+  const own = block === undefined ? 0 : signed(block);
+  const left = Math.sign(own) * Math.max(0, Math.abs(own) - missing_MW);
+  return [Math.min(power(own), power(left)), Math.max(power(own), power(left))];
+}
+
+/** From when on a block is not sure enough, as its missing energy at its end; null: it is all sure. */
+export function unsureFrom(block: CheckedBlock): number | null {
+  const { planned_MWh_el, certain_MWh_el, unmet_MWh_el, ramp_MWh_el } = block;
+  if (block.mode === 'stand' || planned_MWh_el <= 0) return null;
+  const lacks = (planned_MWh_el - unmet_MWh_el - ramp_MWh_el - certain_MWh_el) / planned_MWh_el;
+  if (lacks < 0.002) return null;
+  const from = Date.parse(block.from);
+  const to = Date.parse(block.to);
+  return to - Math.min(1, lacks) * (to - from);
+}
+
+/** When it first falls short, over both pictures, with a word and the time. */
 function ShortFrom({
-  check,
   short,
   x,
-  power,
   zone,
   frame,
 }: {
-  check: ScheduleCheck;
   short: Short;
   x: Scale;
-  power: Scale;
   zone: string | null;
   frame: Frame;
 }) {
   const at = Date.parse(short.time);
-  const within = ({ from, to }: { from: string; to: string }) =>
-    Date.parse(from) <= at && at < Date.parse(to);
-  const run = check.runs.find(within) ?? check.blocks.find(within);
-  const until = run === undefined ? at : Date.parse(run.to);
-  const blocks = check.blocks.filter(
-    ({ from, to, mode }) => mode !== 'stand' && Date.parse(from) < until && Date.parse(to) > at,
-  );
-  const late = x(at) > frame.width * 0.62;
+  const late = x(at) > frame.width * 0.6;
   return (
     <g class="short">
-      {blocks.map((block) => (
-        <Missing
-          key={block.from}
-          from={x(Math.max(at, Date.parse(block.from)))}
-          to={x(Math.min(until, Date.parse(block.to)))}
-          between={spanOf(block, power)}
-        />
-      ))}
       <line x1={x(at)} x2={x(at)} y1={frame.top - 8} y2={HEIGHT - frame.bottom} />
       <text x={x(at) + (late ? -6 : 6)} y={POWER_BOTTOM + 20} text-anchor={late ? 'end' : 'start'}>
         ▲ short from {clockIn(zone, at)}

@@ -116,17 +116,19 @@ export function OfferForm({
           </Field>
         </div>
       </details>
-      <label class="keep">
-        <input
-          type="checkbox"
-          checked={own.keep}
-          onChange={(event) => change({ keep: event.currentTarget.checked })}
-        />
-        <span>Keep it as a promise, to be held against delivery</span>
-      </label>
-      <button type="submit" class="main">
-        {asking ? 'Ask this instead' : 'Ask'}
-      </button>
+      <div class="ends-with">
+        <label class="keep">
+          <input
+            type="checkbox"
+            checked={own.keep}
+            onChange={(event) => change({ keep: event.currentTarget.checked })}
+          />
+          <span>Keep it as a promise, to be held against delivery</span>
+        </label>
+        <button type="submit" class="main">
+          {asking ? 'Ask this instead' : 'Ask'}
+        </button>
+      </div>
       <p id="table-fault" class="fault" role="alert">
         {fault ?? ''}
       </p>

@@ -35,7 +35,8 @@ export function TablePart() {
   const known = entry?.state?.estimate != null;
   const unit = entry?.unit ?? '';
   const asked = offersAsking.of(unit);
-  const fresh = asked.answer === null && asked.since_ms === null && asked.fault === null;
+  // Never by itself again: not after a fault, nor after somebody gave up.
+  const fresh = asked.unit === null;
   useEffect(() => {
     if (definition !== null && known && fresh) ask(definition, { ...form.value, keep: false });
   }, [definition, known, fresh]);

@@ -92,21 +92,38 @@ export function readSchedule(text: string, today: string, now: string): TypedSch
   return { blocks, faults };
 }
 
-/** Tabs rule, then semicolons, then commas; a comma between digits alone is a decimal one. */
+const DATE = /^(\d{4}-\d\d-\d\d|\d\d?\.\d\d?\.\d{4},?)$/;
+const isTime = (text: string): boolean =>
+  TIMED.test(text) || DAY_FIRST.test(text) || CLOCK.test(text);
+const bare = (field: string): string =>
+  field
+    .trim()
+    .replace(/^"(.*)"$/, '$1')
+    .trim();
+
+/** Tabs rule, then semicolons, then blanks where two times begin the row, else commas. */
 function fieldsOf(line: string): string[] {
-  const separator = line.includes('\t') ? /\t/ : line.includes(';') ? /;/ : /,/;
-  const bare = (field: string) =>
-    field
-      .trim()
-      .replace(/^"(.*)"$/, '$1')
-      .trim();
-  const fields = line.split(separator).map(bare);
-  if (separator.source !== ',') return fields;
+  if (line.includes('\t')) return line.split('\t').map(bare);
+  if (line.includes(';')) return line.split(';').map(bare);
+  const words = blanksOf(line);
+  if (words.length >= 3 && words.slice(0, 2).every(isTime)) return words;
+  const fields = line.split(',').map(bare);
   // `18:00, 20:00, 1,5`: two last fields of digits alone are one number.
   const [whole, part] = fields.slice(-2);
   const decimal =
     fields.length >= 4 && /^[+\-−]?\d+$/.test(whole ?? '') && /^\d+$/.test(part ?? '');
   return decimal ? [...fields.slice(0, -2), `${whole}.${part}`] : fields;
+}
+
+/** Words between blanks; a date and the time of day behind it are one. */
+function blanksOf(line: string): string[] {
+  const words: string[] = [];
+  for (const word of line.trim().split(/\s+/)) {
+    const before = words.at(-1);
+    if (before !== undefined && DATE.test(before)) words[words.length - 1] = `${before} ${word}`;
+    else words.push(word);
+  }
+  return words;
 }
 
 function rowOf(

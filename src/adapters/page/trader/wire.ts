@@ -156,6 +156,7 @@ export interface CheckedBlock extends PlannedBlock {
   certain_MWh_el: number;
   expected_shortfall_MWh_el: number;
   unmet_MWh_el: number;
+  ramp_MWh_el: number;
   met_probability: number;
 }
 
