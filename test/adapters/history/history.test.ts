@@ -1,4 +1,5 @@
 import { join } from 'node:path';
+import SQLite from 'better-sqlite3';
 import { describe, expect, it } from 'vitest';
 import { History } from '../../../src/adapters/history/history.js';
 import type { StoreConfig } from '../../../src/config/site.js';
@@ -128,6 +129,78 @@ describe('estimates', () => {
     expect(history.profiles.latest('u')?.time).toBe(profile(40).time);
     history.profiles.add(profile(49), true);
     expect(history.profiles.latest('u')?.time).toBe(profile(49).time);
+    history.stop();
+  });
+});
+
+describe('profiles of a span', () => {
+  const profile = (time_ms: number) => ({
+    time: new Date(time_ms).toISOString(),
+    unit: 'u',
+    stores: {
+      hot: {
+        x_m: [0.04, 0.12],
+        mean_K: [700.123456, 300],
+        tubes: [{ id: 'axis', temperature_K: [700.1239, 300], sigma_K: [1.23456, 2] }],
+        readings: [
+          ...[{ id: 'T1', string: 'axis', position_m: 0.1, value_K: 650.98765, verdict: null }],
+          ...[{ id: 'T2', string: 'axis', position_m: 0.2, value_K: null, verdict: null }],
+        ],
+      },
+    },
+  });
+
+  it('come back to a thousandth of a kelvin with their readings, those of older versions too', () => {
+    const folder = temporaryFolder('history');
+    const history = opened(folder);
+    history.profiles.add(profile(T));
+    history.stop();
+    const older = new SQLite(join(folder, 'history.sqlite'));
+    const insert = older.prepare('INSERT INTO profiles (unit, time, json) VALUES (?, ?, ?)');
+    insert.run('u', T + 600_000, JSON.stringify(profile(T + 600_000)));
+    older.close();
+    const again = opened(folder);
+    const [first, second] = again.profiles.spread('u', T, T + DAY, 10).rows;
+    expect(first!.stores.hot).toEqual({
+      ...profile(T).stores.hot,
+      mean_K: [700.123, 300],
+      tubes: [{ id: 'axis', temperature_K: [700.124, 300], sigma_K: [1.235, 2] }],
+      readings: [
+        { ...profile(T).stores.hot.readings[0], value_K: 650.988 },
+        profile(T).stores.hot.readings[1],
+      ],
+    });
+    expect(second).toEqual(profile(T + 600_000));
+    expect(again.profiles.atOrBefore('u', T + 599_999)?.time).toBe(first!.time);
+    expect(again.profiles.atOrBefore('u', T - 1)).toBeNull();
+    again.stop();
+  });
+
+  it('are the last of equal stretches where there are too many, and a gap stays one', () => {
+    const history = opened();
+    const kept = Array.from({ length: 144 }, (_, i) => T + i * 600_000).filter(
+      (time_ms) => time_ms < T + DAY / 4 || time_ms >= T + DAY / 2,
+    );
+    for (const time_ms of kept) history.profiles.add(profile(time_ms));
+    const { rows, thinned, every_ms } = history.profiles.spread('u', T, T + DAY - 1, 12);
+    expect([thinned, every_ms]).toEqual([true, 7_200_000]);
+    const hours = rows.map(({ time }) => (Date.parse(time) + 600_000 - T) / 3_600_000);
+    expect(hours).toEqual([2, 4, 6, 14, 16, 18, 20, 22, 24]);
+    history.stop();
+  });
+});
+
+describe('the estimate nearest to a time', () => {
+  it('comes with what was measured then, and from neither side too far away', () => {
+    const history = opened();
+    const measured = { flow_kg_s: -12.5, power_MW_el: null };
+    history.estimates.add(unit, estimate(T, 0.5), measured);
+    history.estimates.add(unit, estimate(T + 60_000, 0.6), NOTHING);
+    const near = history.estimates.near('u', T + 29_000, 60_000);
+    expect(near).toEqual({ estimate: estimate(T, 0.5), ...measured });
+    const { estimate: next } = history.estimates.near('u', T + 31_000, 60_000)!;
+    expect(next.state_of_charge).toBe(0.6);
+    expect(history.estimates.near('u', T + 120_001, 60_000)).toBeNull();
     history.stop();
   });
 });
