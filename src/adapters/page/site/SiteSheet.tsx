@@ -1,4 +1,3 @@
-import { isOpen } from '../lib/alarmOrder.js';
 import { ageText, DASH, fixed, hoursText, MODE_WORDS, percent, power } from '../lib/format.js';
 import { ageNow, type UnitEntry } from '../lib/model.js';
 import { model, select } from '../lib/page.js';
@@ -80,7 +79,6 @@ function UnitRow({ entry }: { entry: UnitEntry }) {
   const answers = entry.state?.dispatch?.answers ?? [];
   const firm = answers.find((one) => one.power_MW === entry.firmPower_MW) ?? answers[0] ?? null;
   const delivered = entry.state?.power_MW_el ?? null;
-  const open = own.filter(isOpen).length;
   return (
     <tr data-unit-row={entry.unit} data-level={level} data-old={isOld(trust) ? '' : undefined}>
       <th scope="row">
@@ -112,7 +110,6 @@ function UnitRow({ entry }: { entry: UnitEntry }) {
       <td class="well" data-cell="well">
         <VerdictSign level={level} />
         <span>{level === 'unknown' ? TRUST_WORDS[trust] : words}</span>
-        {open > 1 && <span class="p">{`${open} to acknowledge`}</span>}
       </td>
       <Age entry={entry} />
     </tr>

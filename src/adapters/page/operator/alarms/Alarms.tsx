@@ -23,6 +23,7 @@ export function Alarms() {
   const timeOf = (unit: string) =>
     units.find((one) => one.unit === unit)?.state?.estimate?.time ?? undefined;
   const events = inOrder(model.standing.value);
+  const held = model.heldBack.value;
   const open = events.filter(isOpen).length;
   const hidden = hiding === null ? null : (events.find(({ id }) => id === hiding.id) ?? null);
   return (
@@ -45,23 +46,25 @@ export function Alarms() {
           />
         ))}
       </ul>
-      <HeldBack held={model.heldBack.value} nameOf={nameOf} />
+      <HeldBack held={held} nameOf={nameOf} />
       <p class="fault" role="alert">
         {commandFault}
       </p>
-      <p class="who">
-        <label for="who">Acknowledge as</label>{' '}
-        <input
-          id="who"
-          autocomplete="name"
-          maxLength={64}
-          size={14}
-          value={who}
-          onInput={(typed) => {
-            who.value = typed.currentTarget.value;
-          }}
-        />
-      </p>
+      {(events.length > 0 || held.length > 0) && (
+        <p class="who">
+          <label for="who">Acknowledge as</label>{' '}
+          <input
+            id="who"
+            autocomplete="name"
+            maxLength={64}
+            size={14}
+            value={who}
+            onInput={(typed) => {
+              who.value = typed.currentTarget.value;
+            }}
+          />
+        </p>
+      )}
       {hiding !== null && hidden !== null && (
         <HideDialog
           key={`${hiding.action} ${hiding.id}`}
