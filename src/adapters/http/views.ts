@@ -146,7 +146,7 @@ export function momentView(moment: StoredMoment): Omit<UnitProfileView, 'age_s'>
   };
 }
 
-/** The same without sigma along the tubes, which is near to half of it. */
+/** The same without sigma along the tubes, a fifth of it. */
 export function withoutSigma(moment: PlayedProfileView): PlayedProfileView {
   const stores = Object.entries(moment.stores).map(([id, store]) => [
     id,
