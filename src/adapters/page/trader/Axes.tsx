@@ -40,7 +40,7 @@ export function Axes({
         </g>
       ))}
       {upName !== undefined && (
-        <text class="name" x={0} y={top - 8}>
+        <text class="name" x={0} y={top - 12}>
           {upName}
         </text>
       )}

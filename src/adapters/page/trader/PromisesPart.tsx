@@ -169,7 +169,7 @@ function Tested({ report, zone }: { report: OfferReport; zone: string | null }) 
     <details class="long" open={newest.length <= 12}>
       <summary>Each discharge that put a promise to the test</summary>
       <Scrolled label="Promises put to the test">
-        <table class="plain">
+        <table class="plain tight">
           <thead>
             <tr>
               <th scope="col">began</th>

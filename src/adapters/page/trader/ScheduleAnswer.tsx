@@ -189,7 +189,7 @@ export function BlockTable({ check, zone }: { check: ScheduleCheck; zone: string
   const clock = (time: string) => shortTime(zone, time, Date.parse(check.time));
   return (
     <Scrolled label="Blocks of the schedule">
-      <table class="plain">
+      <table class="plain tight">
         <caption>
           Block by block, MWh<sub>el</sub> in the direction of the block
         </caption>

@@ -211,7 +211,7 @@ function Preview({
       </ul>
       {blocks.length > 0 && (
         <Scrolled label="Blocks as they are read">
-          <table class="plain">
+          <table class="plain tight">
             <caption>
               As it is read: {blocks.length} {blocks.length === 1 ? 'block' : 'blocks'}
             </caption>

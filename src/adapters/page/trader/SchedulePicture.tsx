@@ -37,7 +37,7 @@ function Drawing({
 }) {
   const begin = Date.parse(check.time);
   const end = Math.max(...check.blocks.map(({ to }) => Date.parse(to)));
-  const frame: Frame = { width, height: HEIGHT, left: 42, right: 14, top: 26, bottom: 28 };
+  const frame: Frame = { width, height: HEIGHT, left: 42, right: 22, top: 26, bottom: 28 };
   const x = scaleOf([begin, end], [frame.left, width - frame.right]);
   const marks = hourMarks(zone, begin, end, width < 500 ? 5 : 12);
   const powers = check.blocks.map(signed);
