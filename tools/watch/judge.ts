@@ -63,6 +63,8 @@ function believedAt(causes: readonly Believed[], t_h: number): Believed['cause']
 /** An alert of a healthy plant, and the stretch that it came in. */
 export interface FalseAlert extends Told {
   readonly stretch: string;
+  /** Of `stores_mismatched`: how far they were apart in truth, of the rated energy; null: not known. */
+  readonly truly?: number | null;
 }
 
 /** What the healthy stretches of a plant brought. */
@@ -75,10 +77,22 @@ export interface HealthyJudged {
   readonly other: readonly FalseAlert[];
 }
 
-/** @param runs of one plant by the name of their stretch */
-export function judgeHealthy(seed: number, runs: ReadonlyMap<string, WatchRun>): HealthyJudged {
+/**
+ * @param runs of one plant by the name of their stretch
+ * @param trulyOf how far its stores were apart in truth at a time of a stretch, of the rated energy
+ */
+export function judgeHealthy(
+  seed: number,
+  runs: ReadonlyMap<string, WatchRun>,
+  trulyOf: (stretch: string, t_h: number) => number | null = () => null,
+): HealthyJudged {
   const raised = [...runs].flatMap(([stretch, run]) =>
-    run.events.filter((e) => e.transition === 'raised').map((e) => ({ ...e, stretch })),
+    run.events
+      .filter((e) => e.transition === 'raised')
+      .map((e): FalseAlert => {
+        const known = e.kind === 'stores_mismatched' ? { truly: trulyOf(stretch, e.t_h) } : {};
+        return { ...e, stretch, ...known };
+      }),
   );
   return {
     seed,

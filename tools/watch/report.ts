@@ -122,12 +122,17 @@ function byKind(events: HealthyJudged['degradation']): string {
   return [...counts].map(([kind, n]) => `${kind} ${n}`).join(', ');
 }
 
-/** Each false alert, with its seed and time in the healthy stretch. */
+/** Each false alert, with its seed and time in the healthy stretch, and what is true of it. */
 export function falseAlerts(healthy: readonly HealthyJudged[]): string[] {
   return healthy.flatMap(({ seed, degradation }) =>
     degradation.map(
       (e) =>
-        `  seed ${seed}, ${e.stretch} at ${e.t_h.toFixed(1)} h: ${e.kind} ${e.subject}: ${e.message}`,
+        `  seed ${seed}, ${e.stretch} at ${e.t_h.toFixed(1)} h: ${e.kind} ${e.subject}: ${e.message}${trulyText(e.truly)}`,
     ),
   );
 }
+
+const trulyText = (truly: number | null | undefined): string =>
+  typeof truly === 'number'
+    ? ` In truth the stores had walked ${(100 * Math.abs(truly)).toFixed(1)} % of the rated energy apart.`
+    : '';

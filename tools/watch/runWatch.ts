@@ -1,6 +1,7 @@
 import { createHash } from 'node:crypto';
 import { mkdirSync, readFileSync } from 'node:fs';
 import { join } from 'node:path';
+import { unitModel } from '../../src/core/unitModel.js';
 import { codeHash } from '../score/codeHash.js';
 import { folder, keepFolders, root } from '../score/folder.js';
 import { runJobs } from '../score/pool.js';
@@ -8,6 +9,7 @@ import type { Block } from '../score/table.js';
 import { BRANCHES, HEALTHY, strongest } from './branches.js';
 import { type HealthyJudged, type Judged, judge, judgeHealthy } from './judge.js';
 import { falseAlerts, faultTable, watchBlocks } from './report.js';
+import { trulyApart } from './trueMismatch.js';
 import {
   isDone,
   type WatchCost,
@@ -15,7 +17,8 @@ import {
   type WatchJob,
   watchResult,
 } from './watchJob.js';
-import { TRUTH_CODE } from './watchTruth.js';
+import { keptStretch, TRUTH_CODE } from './watchTruth.js';
+import { watchedUnit } from './watchUnit.js';
 import { WEEKS_SEED } from './weeks.js';
 import type { WatchAnswer } from './worker.js';
 
@@ -143,13 +146,19 @@ function judgedFaults(
 }
 
 /** Healthy stretches of each plant; a recording that two units read counts once. */
-function judgedHealthy(jobs: readonly WatchJob[], { result }: WatchHashes): HealthyJudged[] {
+function judgedHealthy(jobs: readonly WatchJob[], { result, truth }: WatchHashes): HealthyJudged[] {
+  const { fullHours, unit } = unitModel(watchedUnit('demo'));
   return jobs.flatMap(({ kind, seed }) => {
     const names = kind === 'weeks' ? ['weeks'] : ['lead', 'way', HEALTHY.id];
     const runs = names.flatMap((name) => {
       const run = watchResult(seed, name, result);
       return run === null ? [] : [[name, run] as const];
     });
-    return runs.length === 0 ? [] : [judgeHealthy(seed, new Map(runs))];
+    const truly = (stretch: string, t_h: number): number | null => {
+      const recording = keptStretch(seed, stretch, truth);
+      const apart = recording === null ? null : trulyApart(recording, t_h);
+      return apart === null ? null : (apart * fullHours) / unit.rated_hours;
+    };
+    return runs.length === 0 ? [] : [judgeHealthy(seed, new Map(runs), truly)];
   });
 }
