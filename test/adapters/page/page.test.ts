@@ -303,6 +303,118 @@ describe.skipIf(!chromium)('the page, in a real browser', { timeout: 30_000 }, (
     expect(await page.locator('.held-back').count()).toBe(0);
   });
 
+  it('says in one line whether all is well, and what is not', async () => {
+    const { page } = await open();
+    const verdict = page.locator('#verdict');
+    await page.waitForSelector('#verdict[data-level="well"]');
+    expect(await field(page, 'verdict').textContent()).toBe('All as it should be.');
+    expect(await verdict.locator('.because').textContent()).toBe(
+      '80 of 84 thermocouples in use · estimate good · nothing stands',
+    );
+    plant.raise({ kind: 'valve_leaks', subject: 'cold' });
+    await page.waitForSelector('#verdict[data-level="care"]');
+    expect(await field(page, 'verdict').textContent()).toBe('Alert: valve leaks, cold');
+    plant.stale = true;
+    plant.step();
+    await page.waitForSelector('#verdict[data-level="unknown"]');
+  });
+
+  it('shelves with name, reason and time, and takes back from the shelf, by the keyboard', async () => {
+    const { page } = await open();
+    const { id } = plant.raise({ kind: 'valve_leaks', subject: 'cold' });
+    plant.raise({ kind: 'front_spread', subject: 'hot' });
+    const shelve = page.locator(`.events li[data-id="${id}"] [data-action="shelve"]`);
+    await shelve.focus();
+    await page.keyboard.press('Enter');
+    await page.waitForSelector('dialog[open]');
+    await page.fill('#hide-who', 'day shift');
+    await page.fill('#hide-hours', '9');
+    await page.fill('#hide-why', 'seat being lapped');
+    await page.keyboard.press('Enter');
+    await expect
+      .poll(() => page.locator('dialog .fault').textContent(), SLOWLY)
+      .toContain('8 at most; "9" is not');
+    await page.fill('#hide-hours', '2');
+    await page.keyboard.press('Enter');
+    await page.waitForSelector('dialog', { state: 'detached' });
+    const [held] = plant.heldBack();
+    expect(held!.shelved).toMatchObject({ by: 'day shift', why: 'seat being lapped' });
+    expect(Date.parse(held!.shelved!.until) - Date.parse(plant.time())).toBe(2 * 3_600_000);
+    await page.waitForSelector(`.events li[data-id="${id}"]`, { state: 'detached' });
+
+    await page.locator('.held-back summary').click();
+    await page.locator('.held-back [data-action="unshelve"]').click();
+    await page.waitForSelector(`.events li[data-id="${id}"]`);
+    expect(plant.heldBack()).toEqual([]);
+  });
+
+  it('keeps the keyboard on its item when the list changes under it', async () => {
+    const { page } = await open();
+    const { id } = plant.raise({ kind: 'valve_leaks', subject: 'cold' });
+    const own = page.locator(`.events li[data-id="${id}"]`);
+    await own.locator('[data-action="shelve"]').focus();
+    plant.raise({ kind: 'outlet_near_limit', subject: 'hot', class: 'alarm', priority: 'high' });
+    await page.waitForSelector('.events li:nth-child(2)');
+    const focused = () =>
+      page.evaluate(() => {
+        const active = document.activeElement as HTMLElement;
+        return [active.closest<HTMLElement>('[data-id]')?.dataset.id, active.dataset.action];
+      });
+    expect(await focused()).toEqual([id, 'shelve']);
+    // Its button goes away with what it was for: the item keeps the focus.
+    await page.fill('#who', 'night shift');
+    await own.locator('[data-action="acknowledge"]').focus();
+    await page.keyboard.press('Enter');
+    await page.waitForSelector(`.events li[data-id="${id}"][data-state="acknowledged"]`);
+    await expect.poll(async () => (await focused())[0], SLOWLY).toBe(id);
+  });
+
+  it('tells hours at the power delivered now, and what can still be taken', async () => {
+    const { page } = await open();
+    const row = page.locator('.asked-now [data-power="1.85"]');
+    await row.waitFor();
+    const p90 = ((0.62 * 16) / 1.85) * 0.96;
+    const words = `${Math.floor(p90)} h ${String(Math.round((p90 % 1) * 60)).padStart(2, '0')} min`;
+    expect(await row.locator('[data-field="p90"]').textContent()).toBe(words);
+    expect(await field(page, 'firm-hours').textContent()).toBe(words);
+    expect(await page.locator('[data-figure="firm-hours"] small').textContent()).toBe(
+      'p90 at 1.85 MW electric, as now',
+    );
+    await expect
+      .poll(() => field(page, 'headroom').textContent(), SLOWLY)
+      .toBe((0.62 * 16 * 0.96).toFixed(2));
+    // Standing delivers nothing: the firm figure is that at rated power.
+    plant.moment = { charged: 0.62, mode: 'stand' };
+    plant.step();
+    await row.waitFor({ state: 'detached' });
+    expect(await page.locator('[data-figure="firm-hours"] small').textContent()).toBe(
+      'p90 at 2 MW electric',
+    );
+  });
+
+  it('has all units at one look, and goes from there to one', async () => {
+    const { page } = await open();
+    plant.raise({ kind: 'outlet_near_limit', subject: 'hot', unit: 'south', class: 'alarm' });
+    await page.locator('#sheets a', { hasText: 'All units' }).click();
+    const south = page.locator('[data-unit-row="south"]');
+    await page.waitForSelector('[data-unit-row="south"][data-level="urgent"]');
+    const cell = (name: string) => south.locator(`[data-cell="${name}"]`).textContent();
+    expect(await cell('mode')).toBe('discharging');
+    expect(await cell('soc')).toBe('62 %');
+    expect(await cell('hours')).toBe('4 h 46 minat 2 MW');
+    expect(await cell('energy')).toBe('9.5');
+    expect(await cell('power')).toBe('−1.85');
+    expect(await cell('well')).toBe('Alarm: outlet near limit, hot');
+    expect(await cell('age')).toMatch(/^\d+ s$/);
+    expect(await page.locator('[data-unit-row="north"] [data-cell="well"]').textContent()).toBe(
+      'All as it should be.',
+    );
+    expect(await field(page, 'verdict').textContent()).toBe('1 of 2 units as they should be.');
+    await south.locator('a').click();
+    await page.waitForSelector('main[data-sheet="now"] [data-store="hot"]');
+    expect(await page.locator('[data-unit="south"]').getAttribute('aria-pressed')).toBe('true');
+  });
+
   it('works out the hours at a power that the user types, again when the estimate moves on', async () => {
     const { page } = await open();
     await page.waitForSelector('#hours li');

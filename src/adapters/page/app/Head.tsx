@@ -1,6 +1,6 @@
 import { isOpen, openWords } from '../lib/alarmOrder.js';
 import { ageText, QUALITY_WORDS } from '../lib/format.js';
-import { ageNow } from '../lib/model.js';
+import { ageNow, type UnitEntry } from '../lib/model.js';
 import { model, select } from '../lib/page.js';
 import { hrefOf, route, SHEETS, type Sheet } from '../lib/route.js';
 import { TRUST_WORDS, trustOf } from '../lib/trust.js';
@@ -20,7 +20,7 @@ export function Head() {
         <strong>rockhour</strong> <span id="site">{model.site}</span>
       </p>
       <SheetLinks />
-      <UnitButtons />
+      <Units />
       <OpenCount />
       <Freshness />
     </header>
@@ -44,14 +44,45 @@ function SheetLinks() {
   );
 }
 
-/** One button per unit, with what is open there and whether its data are stale. */
+/** So many units have a button each; of more one is chosen from a list. */
+const BUTTONS_MOST = 6;
+
+/** `2 open, stale` of a unit; '' where there is nothing to say. */
+function notesOf(entry: UnitEntry): string {
+  const own = model.standing.value.filter((event) => event.unit === entry.unit);
+  const open = own.filter(isOpen).length;
+  return [open > 0 && `${open} open`, entry.stale && 'stale'].filter(Boolean).join(', ');
+}
+
+/** The units, each with what is open there and whether its data are stale. */
+function Units() {
+  const units = model.units.value;
+  if (units.length <= BUTTONS_MOST) return <UnitButtons />;
+  return (
+    <nav id="units" aria-label="Units">
+      <select
+        aria-label="Unit"
+        value={model.selected.value ?? ''}
+        onChange={(event) => select(event.currentTarget.value)}
+      >
+        {units.map((entry) => {
+          const notes = notesOf(entry);
+          return (
+            <option key={entry.unit} value={entry.unit}>
+              {notes === '' ? entry.name : `${entry.name} (${notes})`}
+            </option>
+          );
+        })}
+      </select>
+    </nav>
+  );
+}
+
 function UnitButtons() {
   return (
     <nav id="units" aria-label="Units">
       {model.units.value.map((entry) => {
-        const own = model.standing.value.filter((event) => event.unit === entry.unit);
-        const open = own.filter(isOpen).length;
-        const notes = [open > 0 && `${open} open`, entry.stale && 'stale'].filter(Boolean);
+        const notes = notesOf(entry);
         return (
           <button
             key={entry.unit}
@@ -61,7 +92,7 @@ function UnitButtons() {
             onClick={() => select(entry.unit)}
           >
             {entry.name}
-            {notes.length > 0 && <span class="note">{notes.join(', ')}</span>}
+            {notes !== '' && <span class="note">{notes}</span>}
           </button>
         );
       })}
