@@ -115,7 +115,7 @@ function HeadroomView({ headroom }: { headroom: Headroom }) {
   const one = answers.find(({ power_MW_el }) => power_MW_el === chosen.value) ?? answers[0];
   return (
     <div class="charge-view">
-      <Scrolled label="What can still be charged">
+      <Scrolled label="Figures by charging power">
         <table class="plain roomy">
           <caption>
             Large: MWh<sub>el</sub> it takes from the grid at least, firm (nine in ten); then how
@@ -206,8 +206,8 @@ function HeadroomCells({ answer }: { answer: HeadroomAnswer }) {
 
 /** A charge ends where the warm or cold front comes through: not as a discharge does. */
 function chargeEnd(cause: NonNullable<HeadroomAnswer['ends_by']>): string {
-  if (cause === 'hot_outlet') return 'hot store full: its outlet grows too warm';
-  if (cause === 'cold_outlet') return 'cold store full: its outlet grows too cold';
+  if (cause === 'hot_outlet') return 'hot store full';
+  if (cause === 'cold_outlet') return 'cold store full';
   return causeWords(cause);
 }
 

@@ -31,9 +31,9 @@ export function OfferDetail({
   if (offer.refused !== null) {
     return (
       <div class="closely">
-        <h3>
+        <h2>
           {power(offer.power_MW_el)} MW from {clock(offer.start)}
-        </h3>
+        </h2>
         <p class="care">✕ Not offered: {causeWords(offer.refused)}.</p>
       </div>
     );
@@ -44,9 +44,9 @@ export function OfferDetail({
   const first = firstMinutesWords(offer.first_minutes);
   return (
     <div class="closely" data-offer={offer.power_MW_el}>
-      <h3>
+      <h2>
         {power(offer.power_MW_el)} MW from {clock(offer.start)}
-      </h3>
+      </h2>
       <p class="large">
         <strong data-field="chosen-energy">{fixed(at?.energy_MWh_el, 2)}</strong>
         <Unit name="MWh_el" />

@@ -147,7 +147,7 @@ export function Nearest({
   ].filter((one) => one !== false);
   return (
     <div class="nearest">
-      <h3>Nearest schedule that holds</h3>
+      <h2>Nearest schedule that holds</h2>
       <p>
         {changes.length === 0 ? 'As asked' : changes.join('; ')}. It holds with{' '}
         <b>{chance(nearest.probability)}</b>.

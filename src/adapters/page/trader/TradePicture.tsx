@@ -65,7 +65,7 @@ function Drawing({
     shown.map((point) => [x(of(point)), y(point.power_MW_el)] as const);
   const band = [...line(({ hours }) => hours.p90), ...line(({ hours }) => hours.p10).reverse()];
   const most_MWh = across.at(-1)! * up.at(-1)!;
-  const energies = roundMarks(most_MWh * 0.6, 5).slice(1);
+  const energies = roundMarks(most_MWh * 0.6, width < 500 ? 3 : 5).slice(1);
   const one = shown.find(({ power_MW_el }) => power_MW_el === chosen_MW) ?? null;
   const words = shown
     .map(({ power_MW_el, firm_h }) => `${power(power_MW_el)} MW for ${hoursText(firm_h)}`)
