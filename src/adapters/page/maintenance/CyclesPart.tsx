@@ -4,6 +4,7 @@ import { api, model } from '../lib/page.js';
 import { useAnswer } from '../lib/useAnswer.js';
 import type { StoreDefinition } from '../lib/wire.js';
 import { Choices } from '../parts/Choices.js';
+import { Scroller } from './Scroller.js';
 import { useMinute } from './useMinute.js';
 import { WeekChart } from './WeekChart.js';
 import { indicatorColumns, runColumns, stringColumns } from './weekColumns.js';
@@ -226,7 +227,7 @@ function RunTable({
   return (
     <details class="more rock-runs">
       <summary>{`The ${runs.length} runs in figures`}</summary>
-      <div class="rock-scroll">
+      <Scroller label="Runs in figures">
         <table>
           <thead>
             <tr>
@@ -253,7 +254,7 @@ function RunTable({
             ))}
           </tbody>
         </table>
-      </div>
+      </Scroller>
     </details>
   );
 }

@@ -87,6 +87,10 @@ export function FrontMap({
           <path class="chosen" d={`M${x(at_s)},0 V${modesAt + MODES + 4}`} />
         </svg>
       )}
+      <p class="rock-key">
+        Fronts over time, each in its bed. Below them the unit: solid discharging, outlined
+        charging, a thin line standing.
+      </p>
     </div>
   );
 }

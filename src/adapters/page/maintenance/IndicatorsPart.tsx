@@ -1,4 +1,5 @@
 import { CAUSES } from '../../../core/watch/causeTable.js';
+import type { Answer } from '../lib/useAnswer.js';
 import { Ruler } from './Ruler.js';
 import { Sign } from './Sign.js';
 import { byStanding, figureWords, STANDING_WORDS, standingOf, valueWords } from './standing.js';
@@ -6,8 +7,9 @@ import type { Indicator, Watch } from './wire.js';
 import { KIND_WORDS, partOf, placeOf, REASON_WORDS } from './words.js';
 
 /** Probable causes first, then each indicator, by what it speaks of. */
-export function IndicatorsPart({ unit, watch }: { unit: string; watch: Watch | null }) {
-  if (watch === null) return <p>No estimate of this unit has been judged yet.</p>;
+export function IndicatorsPart({ unit, watched }: { unit: string; watched: Answer<Watch> }) {
+  const { answer: watch, fault } = watched;
+  if (watch === null) return <p>{fault === null ? 'Being asked for.' : 'Nothing to show.'}</p>;
   const subjects = [...new Set(watch.indicators.map(({ subject }) => subject.split('/')[0]!))];
   // The unit as a whole comes after its stores.
   subjects.sort((a, b) => Number(a === unit) - Number(b === unit));

@@ -55,7 +55,7 @@ function Rock({
         ))}
       </nav>
       <section id={part} key={part} class="rock-part" tabIndex={-1} aria-label={PARTS[part]}>
-        {part === 'indicators' && <IndicatorsPart unit={unit} watch={watched.answer} />}
+        {part === 'indicators' && <IndicatorsPart unit={unit} watched={watched} />}
         {part === 'report' && <ReportPart unit={unit} />}
         {definition !== null && (
           <>

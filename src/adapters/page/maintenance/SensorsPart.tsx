@@ -6,6 +6,7 @@ import { useAnswer } from '../lib/useAnswer.js';
 import type { StoreDefinition } from '../lib/wire.js';
 import { Choices } from '../parts/Choices.js';
 import { useSettled } from '../parts/useSettled.js';
+import { Scroller } from './Scroller.js';
 import {
   filtered,
   type SensorRow,
@@ -65,7 +66,7 @@ export function SensorsPart({
             ? `Readings of ${time === null ? '–' : dateClock(time)}. “Apart” is the reading less the estimate of its string at its height. What losing one costs takes some seconds.`
             : `Readings of ${time === null ? '–' : dateClock(time)}. “If lost”: how much the sigma of the store’s charge grows in the hours ahead; of a rejected one, what its repair would change.`)}
       </p>
-      <div class="rock-scroll">
+      <Scroller label="Table of thermocouples">
         <table class="rock-sensors">
           <thead>
             <tr>
@@ -98,7 +99,7 @@ export function SensorsPart({
             ))}
           </tbody>
         </table>
-      </div>
+      </Scroller>
       {shown.length === 0 && <p>None is rejected or missing.</p>}
     </>
   );

@@ -1,6 +1,7 @@
 import { DASH, dateClock, fixed, MODE_WORDS, withSigma } from '../lib/format.js';
 import { model } from '../lib/page.js';
 import type { StoreDefinition, StoreProfile, StoreState } from '../lib/wire.js';
+import { Scroller } from './Scroller.js';
 import { StringsPlot } from './StringsPlot.js';
 
 /** The strings of each store in one plot: where one runs ahead, gas has found an easier way. */
@@ -42,7 +43,7 @@ function OneStore({
   return (
     <>
       <StringsPlot store={store} own={own} profile={profile} />
-      <div class="rock-scroll">
+      <Scroller label={`Figures of the strings of ${store.id}`}>
         <table>
           <thead>
             <tr>
@@ -76,7 +77,7 @@ function OneStore({
             })}
           </tbody>
         </table>
-      </div>
+      </Scroller>
     </>
   );
 }
