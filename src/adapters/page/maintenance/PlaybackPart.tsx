@@ -1,4 +1,4 @@
-import { useEffect, useMemo, useState } from 'preact/hooks';
+import { useEffect, useMemo, useRef, useState } from 'preact/hooks';
 import { api, model } from '../lib/page.js';
 import { hrefOf, route } from '../lib/route.js';
 import { useAnswer } from '../lib/useAnswer.js';
@@ -12,7 +12,8 @@ import { Player } from './Player.js';
 import type { PastProfile, Playback } from './wire.js';
 
 const HOUR_MS = 3_600_000;
-const POINTS = 144;
+/** Of a day all that are stored. */
+const POINTS = 145;
 const SETTLE_MS = 400;
 const SPANS = [
   { value: '24', label: '24 h' },
@@ -21,10 +22,10 @@ const SPANS = [
   { value: '720', label: '30 days' },
 ];
 
-/** The span looked at: its length, and its end; null ends with the newest estimate. */
+/** The span looked at: its length, and the moment in its middle; null ends with the newest estimate. */
 interface Span {
   readonly hours: string;
-  readonly end_ms: number | null;
+  readonly about_ms: number | null;
 }
 
 /** The moment that the address asks for, `#rock/playback/TIME`. */
@@ -38,10 +39,12 @@ const newest_ms = () => {
   return time === undefined ? null : Date.parse(time);
 };
 
-/** A span around a moment that does not reach beyond the newest estimate. */
-function around(at_ms: number, hours: string): Span {
-  const end_ms = at_ms + (Number(hours) / 2) * HOUR_MS;
-  return { hours, end_ms: end_ms >= (newest_ms() ?? 0) ? null : end_ms };
+/** Its ends; it does not reach beyond the newest estimate, which has to be known. */
+function endsOf({ hours, about_ms }: Span): { from: string; to: string } {
+  const length_ms = Number(hours) * HOUR_MS;
+  const newest = newest_ms() ?? Date.now();
+  const to_ms = about_ms === null ? newest : Math.min(newest, about_ms + length_ms / 2);
+  return { from: new Date(to_ms - length_ms).toISOString(), to: new Date(to_ms).toISOString() };
 }
 
 /** The beds as they were: a slider over the stored profiles. */
@@ -53,30 +56,25 @@ export function PlaybackPart({
   stores: readonly StoreDefinition[];
 }) {
   const wanted = asked();
-  const [span, setSpan] = useState<Span>(() =>
-    wanted === null ? { hours: '24', end_ms: null } : around(wanted, '24'),
-  );
+  const [span, setSpan] = useState<Span>({ hours: '24', about_ms: wanted });
   const [chosen_s, setChosen] = useState<number | null>(wanted === null ? null : wanted / 1000);
   // Each time the span is set anew, "newest" is another time.
   const [tries, setTries] = useState(0);
-  const look = (next: Span, at_ms: number | null) => {
+  const look = (next: Span) => {
     setSpan(next);
-    setChosen(at_ms === null ? null : at_ms / 1000);
+    setChosen(next.about_ms === null ? null : next.about_ms / 1000);
     setTries((before) => before + 1);
   };
+  const last = useRef(wanted);
   useEffect(() => {
-    if (wanted !== null) look(around(wanted, span.hours), wanted);
+    if (wanted !== null && wanted !== last.current) look({ ...span, about_ms: wanted });
+    last.current = wanted;
   }, [wanted]);
 
   const started = model.unit.value?.state?.estimate != null;
-  const key = started ? `${unit} ${span.hours} ${span.end_ms} ${tries}` : null;
+  const key = started ? `${unit} ${span.hours} ${span.about_ms} ${tries}` : null;
   const { answer, fault, asking } = useAnswer(key, (signal) => {
-    const end_ms = span.end_ms ?? newest_ms() ?? Date.now();
-    const query = {
-      from: new Date(end_ms - Number(span.hours) * HOUR_MS).toISOString(),
-      to: new Date(end_ms).toISOString(),
-      ...{ points: POINTS, sigma: 'no' },
-    };
+    const query = { ...endsOf(span), points: POINTS, sigma: 'no' };
     return api.get<Playback>(api.path(unit, 'profiles'), query, signal);
   });
   return (
@@ -88,14 +86,11 @@ export function PlaybackPart({
           options={SPANS}
           chosen={span.hours}
           onChoose={(hours) =>
-            look(
-              chosen_s === null ? { hours, end_ms: null } : around(chosen_s * 1000, hours),
-              chosen_s === null ? null : chosen_s * 1000,
-            )
+            look({ hours, about_ms: chosen_s === null ? null : chosen_s * 1000 })
           }
         />
-        <GoTo onGo={(at_ms) => look(around(at_ms, span.hours), at_ms)} />
-        <button type="button" onClick={() => look({ ...span, end_ms: null }, null)}>
+        <GoTo onGo={(about_ms) => look({ ...span, about_ms })} />
+        <button type="button" onClick={() => look({ ...span, about_ms: null })}>
           To the newest
         </button>
       </div>
