@@ -96,6 +96,10 @@ export class AlarmPart {
     this.options.changed(unit);
   }
 
+  get shelveMost_h(): number {
+    return this.options.config.shelve_most_h;
+  }
+
   shown(unit?: string): AlarmEntry[] {
     return inOrder(this.entries(unit).filter(({ state }) => !isHeldBack(state)));
   }

@@ -198,6 +198,10 @@ export class DaemonService implements PlantService {
     return questions.report(unit, { ...question, version, site: siteName, made_ms, store });
   }
 
+  get shelveMost_h(): number {
+    return this.parts.alarms.shelveMost_h;
+  }
+
   standing(unit?: string): AlarmEntry[] {
     return this.parts.alarms.shown(unit);
   }

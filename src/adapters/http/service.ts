@@ -146,6 +146,8 @@ export interface PlantService {
   /** Alarms and alerts that are shown, and those held back: shelved, suppressed, out of service. */
   standing(unit?: string): AlarmEntry[];
   heldBack(unit?: string): AlarmEntry[];
+  /** Longest time for which one may be shelved [h]. */
+  readonly shelveMost_h: number;
   events(unit: string | undefined, from_ms: number, to_ms: number, most: number): WatchEvent[];
   /** Follows a command about an alarm, as it came, or says what is wrong with it. */
   commandAlarm(command: unknown): AlarmAnswer;

@@ -135,6 +135,7 @@ export class ScriptedPlant implements PlantService {
   moment: Moment = { charged: 0.62, mode: 'discharge' };
   scans = 0;
   failHours: Error | null = null;
+  shelveMost_h = 8;
   private readonly alarms = new Map<string, { event: WatchEvent; alarm: AlarmState }>();
   private readonly past: WatchEvent[] = [];
   private readonly transitions: RecordedTransition[] = [];
@@ -530,7 +531,7 @@ export class ScriptedPlant implements PlantService {
   }
 
   commandAlarm(value: unknown): AlarmAnswer {
-    const command = readCommand(value, 8);
+    const command = readCommand(value, this.shelveMost_h);
     if (isFault(command)) return { accepted: false, fault: command };
     const { id, who, action } = command;
     const known = this.alarms.get(id);

@@ -84,7 +84,7 @@ const listRoutes: Routes = (app, { service }) => {
       const counts: Record<string, number> = {};
       for (const { state } of [...standing, ...suppressed])
         counts[state] = (counts[state] ?? 0) + 1;
-      return { standing, suppressed, counts };
+      return { standing, suppressed, counts, shelve_most_h: service.shelveMost_h };
     },
   );
 

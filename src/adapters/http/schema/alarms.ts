@@ -33,6 +33,7 @@ export const alarmsSchema = z.object({
     .array(alarmEntrySchema)
     .describe('Held back: shelved, suppressed by design or out of service'),
   counts: z.record(z.string(), z.number()).describe('How many there are of each state'),
+  shelve_most_h: z.number().describe('Longest time for which one may be shelved [h]'),
 });
 
 export const commandedSchema = z.object({

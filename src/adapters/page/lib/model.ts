@@ -32,6 +32,8 @@ export class PageModel {
   readonly standing = signal<readonly Standing[]>([]);
   /** Shelved, suppressed by design or out of service. */
   readonly heldBack = signal<readonly Standing[]>([]);
+  /** Longest time for which one may be shelved [h], as configured. */
+  readonly shelveMost_h = signal(0);
   /** Events of a storm that were not sent one by one, and when the last of them came [wall clock]. */
   readonly storm = signal<{ readonly count: number; readonly last_ms: number } | null>(null);
   /** Goes on once a second, for ages that grow by themselves [ms of performance.now()]. */

@@ -13,7 +13,8 @@ export const api = new Api();
 /** The list of what stands is always asked of the server whole, never pieced together here. */
 export async function reloadAlarms(): Promise<void> {
   try {
-    const { standing, suppressed } = await api.alarms();
+    const { standing, suppressed, shelve_most_h } = await api.alarms();
+    model.shelveMost_h.value = shelve_most_h;
     model.standing.value = standing;
     model.heldBack.value = suppressed;
     model.alarmNews.value += 1;

@@ -135,6 +135,8 @@ export type Standing = Told &
 export interface AlarmLists {
   standing: Standing[];
   suppressed: Standing[];
+  /** Longest time for which one may be shelved [h]. */
+  shelve_most_h: number;
 }
 
 export interface History {

@@ -11,7 +11,6 @@ import { who } from './who.js';
 
 /** A storm is spoken of for so long after its last event [ms]. */
 const STORM_TOLD_MS = 600_000;
-const SHELVE_MOST_H = 8;
 
 /** What stands, of all units: an alarm of a unit that is not on the screen must not be missed. */
 export function Alarms() {
@@ -71,7 +70,7 @@ export function Alarms() {
           event={hidden}
           action={hiding.action}
           unitName={nameOf(hidden.unit)}
-          most_h={SHELVE_MOST_H}
+          most_h={model.shelveMost_h.value}
           onClose={() => setHiding(null)}
         />
       )}
