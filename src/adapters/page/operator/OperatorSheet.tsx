@@ -19,6 +19,7 @@ export function OperatorSheet() {
   const key = entry?.unit ?? '';
   return (
     <>
+      <h1 class="unseen">{entry === null ? 'Now' : `Now: ${entry.name}`}</h1>
       <VerdictLine />
       <Figures entry={entry} present={present} headroom={headroom} />
       <Alarms />
