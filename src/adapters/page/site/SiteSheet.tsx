@@ -27,7 +27,7 @@ export function SiteSheet() {
   const told = siteVerdict(verdictsOf(model.connection.value, units, model.standing.value));
   return (
     <section id="all-units" aria-labelledby="all-units-head" data-size={size}>
-      <h2 id="all-units-head">All units</h2>
+      <h1 id="all-units-head">All units</h1>
       <div id="verdict" role="status" data-level={told.level}>
         <VerdictSign level={told.level} />
         <p>
