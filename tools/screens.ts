@@ -120,6 +120,8 @@ async function inAllLooks(page: Page, open: () => number, name: string, whole = 
     for (const scheme of schemes) {
       await page.emulateMedia({ colorScheme: scheme });
       await settled(page, open);
+      // A part that a link leads to is scrolled to; the head would lie over it.
+      if (whole) await page.evaluate(() => scrollTo(0, 0));
       const path = `${out}/${name}-${text}-${scheme}.png`;
       await page.screenshot({ path, fullPage: whole });
       const wider = await page.evaluate(() => document.documentElement.scrollWidth - innerWidth);

@@ -29,18 +29,15 @@ async function visit(browser: Browser, url: string): Promise<{ paint: number; fi
       }).observe(document, { childList: true, subtree: true });
     });
     await page.goto(url);
-    return await page.evaluate(
+    await page.waitForFunction(
       () =>
-        new Promise<{ paint: number; figures: number }>((resolve) => {
-          const look = () => {
-            const [paint] = performance.getEntriesByName('first-contentful-paint');
-            const [figures] = performance.getEntriesByName('figures');
-            if (paint && figures) resolve({ paint: paint.startTime, figures: figures.startTime });
-            else setTimeout(look, 20);
-          };
-          look();
-        }),
+        performance.getEntriesByName('first-contentful-paint').length > 0 &&
+        performance.getEntriesByName('figures').length > 0,
     );
+    return await page.evaluate(() => ({
+      paint: performance.getEntriesByName('first-contentful-paint')[0]!.startTime,
+      figures: performance.getEntriesByName('figures')[0]!.startTime,
+    }));
   } finally {
     await context.close();
   }

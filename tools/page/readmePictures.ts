@@ -10,9 +10,9 @@ export interface Picture {
 
 /** The pictures of README.md. */
 export const PICTURES: readonly Picture[] = [
-  { path: 'now', file: 'now.webp', width: 1280, height: 800, dark: false },
-  { path: 'rock/playback', file: 'rock.webp', width: 1280, height: 800, dark: false },
-  { path: 'offer/table', file: 'offer.webp', width: 1280, height: 800, dark: true },
+  { path: 'now', file: 'now.webp', width: 1280, height: 1060, dark: false },
+  { path: 'rock/playback', file: 'rock.webp', width: 1280, height: 1140, dark: false },
+  { path: 'offer/table', file: 'offer.webp', width: 1280, height: 1060, dark: true },
   { path: 'now', file: 'phone.webp', width: 390, height: 844, dark: true },
 ];
 
