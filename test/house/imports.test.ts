@@ -36,7 +36,14 @@ const RULES: readonly Rule[] = [
   },
   {
     of: /^src\/adapters\/page\//,
-    may: [/^uplot$/, /^preact(\/|$)/, /^@preact\/signals$/, /^src\/adapters\/page\//],
+    // The tables of what is watched are plain values without a library: the page shows them as they are.
+    may: [
+      /^uplot$/,
+      /^preact(\/|$)/,
+      /^@preact\/signals$/,
+      /^src\/core\/watch\/(causeTable|kinds|side)$/,
+      /^src\/adapters\/page\//,
+    ],
     mayTypes: [core, /^src\/adapters\/http\//],
   },
   adapter('mqtt', /^mqtt$/, /^aedes$/),

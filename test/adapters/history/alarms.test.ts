@@ -262,7 +262,8 @@ describe('what is told outside', () => {
     raise('front_spread', T);
     history.stop();
     const old = new SQLite(join(folder, 'history.sqlite'));
-    old.exec(`DROP TABLE tellings; UPDATE alarms SET alarm = json_remove(alarm, '$.told');
+    old.exec(`DROP TABLE rollup_10min; DROP TABLE rollup_2h; DROP TABLE rollup_1d; DROP TABLE rolled_up;
+      DROP TABLE tellings; UPDATE alarms SET alarm = json_remove(alarm, '$.told');
       INSERT INTO cursors VALUES ('events to r', 0), ('events to s', 40)`);
     old.pragma('user_version = 4');
     old.close();
