@@ -52,7 +52,7 @@ export const INDICATORS: readonly Indicator<unknown>[] = ALL.toSorted(
  * Counts up where the state of an indicator changes its shape: states of another version are begun
  * anew, baselines included, and the rest of the checkpoint is kept.
  */
-export const INDICATORS_VERSION = 3;
+export const INDICATORS_VERSION = 4;
 
 /** State of each indicator by kind, made when it is first stepped, and how old their values are. Plain, bounded. */
 export type IndicatorStates = Partial<Record<IndicatorKind, unknown>> & { ageing?: Ageing };

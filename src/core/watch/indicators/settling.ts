@@ -4,9 +4,9 @@ import type { SensorVerdict } from '../../estimate.js';
 import type { StoreModel, StoreState } from '../../track/storeTracker.js';
 import type { Indicator, IndicatorInput, IndicatorsDefinition } from '../indicator.js';
 import { decisionAt, type SequentialValue, stepSequential } from '../sequential.js';
-import { followEntry } from './settlingEntry.js';
+import { followEntry, UNCOVERED } from './settlingEntry.js';
 import { type Level, restart, startLevel, type Top, topEnd } from './settlingLevel.js';
-import { APART_K, COVERED, settlingView } from './settlingView.js';
+import { APART_K, settlingView } from './settlingView.js';
 import { remembered, stampOf } from './shown.js';
 
 /** Junctions and gas settle first; then means over this long are compared [s]. */
@@ -21,6 +21,8 @@ const CHANGE_K = 0.8;
 const ROCK_SHARE = 0.7;
 /** Later in a rest both cool together, and what they part by takes hours: no value of that [s]. */
 const PAIR_S = 5400;
+/** Share of the gas's movement that a covered junction just below the surface may show. */
+const COVERED = 0.2;
 const SHARE_SIGMA = 0.15;
 
 /** Readings of these tell of no place at all; `offset` and `drifting` are what hanging in gas is taken for. */
@@ -46,7 +48,7 @@ export interface SettlingState {
  *   s = (reading's change - rock's change) / (gas's change - rock's change)
  *
  * is one value of each topmost thermocouple's test: about 0 in rock, 1 in gas. Constant offsets cancel.
- * How they follow gas that begins to enter there gives another one (see followEntry).
+ * How quickly they follow gas that begins to enter there is another one (see followEntry).
  * Thermocouples that the judgement calls `uncovered` count as well.
  */
 export const SETTLING: Indicator<SettlingState> = {
@@ -141,15 +143,11 @@ function enter(
     ambient_K: conditions.ambient_K,
     dt_s,
   });
-  const together = leaps.filter((leap, i) => leap !== null && level.tops[i]?.first).length;
   leaps.forEach((leap, i) => {
     if (leap === null) return;
-    // What a covered junction shows of the gas is in the model here.
-    const { value, own, shared } = leap;
-    const tested = { value, sigma: Math.hypot(own, shared), healthy: 0, degraded: 1 };
-    // So many values with the shared error grown by their root know as much together as their mean does.
-    const ofAll = Math.hypot(own, Math.sqrt(together) * shared);
-    take(level, level.tops[i] as Top, tested, ofAll, in_control_d, time_ms);
+    const { value, sigma, covered } = leap;
+    const tested = { value, sigma, healthy: covered, degraded: UNCOVERED };
+    take(level, level.tops[i] as Top, tested, in_control_d, time_ms);
   });
 }
 
@@ -180,32 +178,24 @@ function compare(
     const value = (now.read_K - from.read_K - rocks) / apart;
     const sigma = Math.hypot(CHANGE_K / apart, (ROCK_SHARE * rocks) / apart, SHARE_SIGMA);
     const tested = { value, sigma, healthy: COVERED, degraded: 1 };
-    take(level, top, tested, sigma, in_control_d, time_ms);
+    take(level, top, tested, in_control_d, time_ms);
   }
 }
 
-/**
- * Hands a value to the test of its thermocouple and, of a topmost one, to that of the whole bed.
- *
- * @param ofAll its sigma in the latter
- */
+/** Hands a value to the test of its thermocouple and, of a topmost one, to that of the whole bed. */
 function take(
-  level: Level,
+  { whole, tops }: Level,
   { first, followed }: Top,
   tested: SequentialValue,
-  ofAll: number,
   in_control_d: number,
   time_ms: number,
 ): void {
-  const { whole, tops } = level;
-  const { value } = tested;
-  if (first) level.information += ofAll ** -2;
+  const { value, sigma } = tested;
   // One test for each, and that of the whole, which takes as many values as there are topmost ones.
   const count = tops.length + tops.filter((top) => top.first).length;
   for (const one of first ? [followed, whole] : [followed]) {
-    const sigma = one === whole ? ofAll : tested.sigma;
     one.decision = decisionAt(in_control_d, 6 * MEAN_S, count);
-    stepSequential(one.test, { ...tested, sigma }, one.decision);
+    stepSequential(one.test, tested, one.decision);
     Object.assign(one, { value, sigma, time_ms });
   }
 }

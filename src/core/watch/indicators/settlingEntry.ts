@@ -1,64 +1,28 @@
+import { createBedWork, stepBed } from '../../bed/kernel.js';
+import { temperatureAt } from '../../bed/tables.js';
 import type { StoreModel, StoreState } from '../../track/storeTracker.js';
-import type { TubeState } from '../../track/tube.js';
-import { depthOf, type Place, rockAt, seenAt, stepEntering } from './settlingBed.js';
+import type { TubeModel, TubeState } from '../../track/tube.js';
 
-/** Gas that enters is followed so long; a run that ends before the lesser one tells nothing [s]. */
-const TO_S = 1800;
-const LEAST_S = 600;
+/** A thermowell of up to 180 s has come within a tenth after so long; readings are averaged to the end [s]. */
+const FROM_S = 420;
+const TO_S = 600;
 /** Readings before the gas enters fade with this time [s]. */
 const FADE_S = 300;
-/** Thermowells lag by 30 to 180 s, evenly drawn: mean and one sigma [s]. */
-const LAG_S = 105;
-const LAG_SIGMA_S = 43;
+/** The gas must have leapt by this, or its leap tells nothing [K]. */
+const LEAP_K = 6;
+/** Sigma of a mean with noise and drift [K], and of the model's share of warming. */
+const NOISE_K = 0.4;
+const MODEL_SHARE = 0.12;
 /** A junction sees any share of the gas, 0.5 +/- 0.29. */
 const GAS_SHARE = 0.5;
 const GAS_SHARE_SIGMA = 0.29;
-/** White noise of a scan, and of the means before the gas enters with what drifts since [K]. */
-const SCAN_K = 0.2;
-const BEFORE_K = 0.3;
-/**
- * One sigma of gas less rock as the gas begins to enter: of the channel of the gas, which all places
- * share, and of the rock at a place [K].
- */
-const GAS_K = 0.7;
-const ROCK_K = 0.7;
-/** Of a thermocouple's place [m], and of flow and heat capacity, as a share. */
-const PLACE_M = 0.01;
-const RATE_SHARE = 0.05;
-/** Of what the model makes wrong else: the lid's steel takes of the leap first. */
-const MODEL_SHARE = 0.1;
-/** The share of what moves is not told less surely than this, or it has no value at all. */
-const USELESS = 0.5;
+/** Share of the gas's leap that an uncovered junction shows by then: 0.9 to 1. */
+export const UNCOVERED = 0.95;
 
-/** As modelled, with gas 1 K warmer, and with a tenth more flow. */
-const FASTER = 1.1;
-const VARIANTS = [
-  { warmer_K: 0, flow: 1 },
-  { warmer_K: 1, flow: 1 },
-  { warmer_K: 0, flow: FASTER },
-] as const;
-
-/** Signals at a place behind a thermowell [K]: what a junction shows, and how that hangs on what is uncertain. */
-interface Signals {
-  /** In gas, and in gas with a thermowell one sigma slower. */
-  bare: number;
-  slower: number;
-  /** In rock; per kelvin of the gas; per unit of ln flow; gas less rock. */
-  covered: number;
-  warmer: number;
-  faster: number;
-  parted: number;
-}
-
-/** Sums over scans, x = bare less covered, y = reading less covered. */
-interface Sums {
-  xx: number;
-  xy: number;
-  x: number;
-  slower: number;
-  warmer: number;
-  faster: number;
-  parted: number;
+/** Where a tested thermocouple hangs. */
+export interface Place {
+  readonly tube: number;
+  readonly sensor: number;
 }
 
 /** Gas that enters at the top, from its first scan on. Plain. */
@@ -68,27 +32,28 @@ export interface Entry {
   readonly read_K: number[];
   /** Time since it entered [s]; 0 while it does not. */
   since_s: number;
-  /** Its value has been handed out. */
-  told: boolean;
-  /** Tubes moved on by the model alone since then, by variant, and their rock at the places at first [K]. */
-  beds: Float64Array[][] | null;
+  scans: number;
+  gasSum_K: number;
+  readonly readSum_K: number[];
+  readonly readCount: number[];
+  /** Tubes moved on by the model alone since then, and their rock at the places at first [K]. */
+  beds: Float64Array[] | null;
   rock_K: number[];
-  signals: Signals[];
-  sums: Sums[];
 }
 
 export function startEntry(places: readonly Place[]): Entry {
-  return { gas_K: Number.NaN, read_K: places.map(() => Number.NaN), ...calmed() };
+  return {
+    gas_K: Number.NaN,
+    read_K: places.map(() => Number.NaN),
+    since_s: 0,
+    scans: 0,
+    gasSum_K: 0,
+    readSum_K: places.map(() => 0),
+    readCount: places.map(() => 0),
+    beds: null,
+    rock_K: [],
+  };
 }
-
-const calmed = (): Omit<Entry, 'gas_K' | 'read_K'> => ({
-  since_s: 0,
-  told: false,
-  beds: null,
-  rock_K: [],
-  signals: [],
-  sums: [],
-});
 
 export interface EntryScan {
   /** Gas above the bed, and readings at the places [K]; NaN = none. */
@@ -100,29 +65,21 @@ export interface EntryScan {
   readonly dt_s: number;
 }
 
-/** Share of gas in what a place shows, 0 in rock and 1 in gas. */
+/** Share of the gas's leap that a place shows, and what rock shows of it there, with its sigma. */
 export interface Leap {
   readonly value: number;
-  /** One sigma: what is of this place alone, and what all places of the store share. */
-  readonly own: number;
-  readonly shared: number;
+  readonly sigma: number;
+  readonly covered: number;
 }
 
 /**
- * How readings follow gas that begins to enter at the top at another temperature than the rock's. Over
- * half an hour, y = reading less what the bed model alone has it show in rock is regressed on x = what
- * it would show in gas less the same, all as changes since before the gas entered:
- *
- *   s = sum x y / sum x^2       0 in rock, 1 in gas
- *
- * A junction in gas is there within its thermowell's lag; rock a decimetre down takes its heat capacity
- * over that of the gas, a quarter of an hour. Whatever else errs by e(t) moves s by sum x e / sum x^2:
- * noise, level of gas and rock at first, place and flow, share of gas and lag of the junction, which
- * are summed alongside. Hence sigma follows from the contrast that there was; a few kelvins tell.
+ * How quickly readings follow gas that begins to enter at the top at another temperature: a junction
+ * in gas is there within its thermowell's lag, rock a decimetre down takes a quarter of an hour, as the
+ * bed model alone has it. Where a junction sees part of the gas, that part counts to rock with it.
  *
  * @param entry changed in place
- * @returns once the gas has entered for half an hour, or has ceased after ten minutes or more, a value
- *   for each place; null for one of which nothing can be told; else an empty list
+ * @returns ten minutes after the gas began to enter, a value for each place; null for one that cannot
+ *   be told; else an empty list
  */
 export function followEntry(
   entry: Entry,
@@ -132,16 +89,27 @@ export function followEntry(
   scan: EntryScan,
 ): (Leap | null)[] {
   if (scan.massFlux_kg_m2s === 0) {
-    const leaps = entry.since_s >= LEAST_S ? tell(entry, model, places) : [];
     calm(entry, scan);
-    return leaps;
+    return [];
   }
-  if (entry.told) return [];
-  entry.beds ??= VARIANTS.map(() => state.tubes.map(({ enthalpy }) => enthalpy.slice()));
-  if (entry.since_s === 0) begin(entry, model, places);
+  if (entry.since_s >= TO_S) return [];
+  if (entry.beds === null) {
+    entry.beds = state.tubes.map(({ enthalpy }) => enthalpy.slice());
+    entry.rock_K = places.map((place) => rockOf(model, entry.beds as Float64Array[], place));
+  }
   entry.since_s += scan.dt_s;
-  if (Number.isFinite(scan.gas_K) && scan.dt_s > 0) march(entry, model, state, places, scan);
-  return entry.since_s >= TO_S ? tell(entry, model, places) : [];
+  const lags = march(entry.beds, model, state, scan);
+  if (entry.since_s > FROM_S && Number.isFinite(scan.gas_K)) {
+    entry.scans++;
+    entry.gasSum_K += scan.gas_K;
+    scan.read_K.forEach((read, i) => {
+      if (!Number.isFinite(read)) return;
+      entry.readSum_K[i] = (entry.readSum_K[i] as number) + read;
+      entry.readCount[i] = (entry.readCount[i] as number) + 1;
+    });
+  }
+  if (entry.since_s < TO_S || entry.scans === 0) return [];
+  return places.map((place, i) => leapAt(entry, model, place, i, lags[place.tube] as Float64Array));
 }
 
 function calm(entry: Entry, { gas_K, read_K, dt_s }: EntryScan): void {
@@ -152,91 +120,75 @@ function calm(entry: Entry, { gas_K, read_K, dt_s }: EntryScan): void {
   read_K.forEach((now, i) => {
     entry.read_K[i] = towards(entry.read_K[i] as number, now);
   });
-  if (entry.beds !== null) Object.assign(entry, calmed());
+  if (entry.since_s === 0 && entry.beds === null) return;
+  entry.since_s = 0;
+  entry.scans = 0;
+  entry.gasSum_K = 0;
+  entry.readSum_K.fill(0);
+  entry.readCount.fill(0);
+  entry.beds = null;
+  entry.rock_K = [];
 }
 
-function begin(entry: Entry, model: StoreModel, places: readonly Place[]): void {
-  const beds = entry.beds?.[0] as Float64Array[];
-  entry.rock_K = places.map((place) =>
-    rockAt(model, beds[place.tube] as Float64Array, depthOf(model, place)),
-  );
-  entry.signals = places.map(() => ({
-    ...{ bare: 0, slower: 0, covered: 0, warmer: 0, faster: 0, parted: 0 },
-  }));
-  entry.sums = places.map(() => ({
-    ...{ xx: 0, xy: 0, x: 0, slower: 0, warmer: 0, faster: 0, parted: 0 },
-  }));
-}
-
-/** Moves the tubes on by the model, the signals behind it, and adds the readings. */
+/** Moves the tubes on by the model; the gas-to-rock lag of their cells [m]. */
 function march(
+  beds: readonly Float64Array[],
+  { tubes, tables }: StoreModel,
+  state: StoreState,
+  { gas_K, massFlux_kg_m2s, ambient_K, dt_s }: EntryScan,
+): Float64Array[] {
+  return tubes.map((tube, k) => {
+    const bed = beds[k] as Float64Array;
+    const { further } = state.tubes[k] as TubeState;
+    const at = (index: number): number => further[index - tube.layout.cells] as number;
+    const work = createBedWork(bed.length);
+    if (!Number.isFinite(gas_K) || dt_s <= 0) return work.gasLag_m;
+    const step = {
+      massFlux_kg_m2s: massFlux_kg_m2s * Math.exp(at(tube.layout.flow)),
+      inlet_K: gas_K,
+      ambient_K,
+      dt_s,
+      heatTransferFactor: Math.exp(at(tube.layout.transfer)),
+      wallLoss_W_m3K: tube.wallLoss_W_m3K,
+    };
+    stepBed(tables, bed, step, work);
+    return work.gasLag_m;
+  });
+}
+
+const cellOf = ({ layout, string }: TubeModel, length_m: number, sensor: number): number => {
+  const x = string.thermocouples[sensor]?.position_m ?? 0;
+  return Math.min(layout.cells - 1, Math.max(0, Math.floor((x / length_m) * layout.cells)));
+};
+
+function rockOf(model: StoreModel, beds: readonly Float64Array[], place: Place): number {
+  const tube = model.tubes[place.tube] as TubeModel;
+  const cell = cellOf(tube, model.store.bed.length_m, place.sensor);
+  return temperatureAt(model.tables, (beds[place.tube] as Float64Array)[cell] as number);
+}
+
+function leapAt(
   entry: Entry,
   model: StoreModel,
-  state: StoreState,
-  places: readonly Place[],
-  scan: EntryScan,
-): void {
-  const { gas_K, read_K, dt_s } = scan;
-  const seen = VARIANTS.map((variant, v) =>
-    model.tubes.flatMap((tube, k) => {
-      const bed = entry.beds?.[v]?.[k] as Float64Array;
-      const inlet_K = gas_K + variant.warmer_K;
-      const massFlux_kg_m2s = variant.flow * scan.massFlux_kg_m2s;
-      const entering = { ...scan, massFlux_kg_m2s, inlet_K };
-      const lag_m = stepEntering(model, tube, state.tubes[k] as TubeState, bed, entering);
-      return places.flatMap((place, i) =>
-        place.tube === k
-          ? [{ i, ...seenAt(model, bed, lag_m, depthOf(model, place), inlet_K) }]
-          : [],
-      );
-    }),
-  );
-  const mixed = ({ gas, rock }: { gas: number; rock: number }): number =>
-    GAS_SHARE * gas + (1 - GAS_SHARE) * rock;
-  const keep = Math.exp(-dt_s / LAG_S);
-  const keepSlower = Math.exp(-dt_s / (LAG_S + LAG_SIGMA_S));
-  seen[0]?.forEach((own, n) => {
-    const { i } = own;
-    const now = entry.signals[i] as Signals;
-    const level = mixed(own);
-    const leap = gas_K - entry.gas_K;
-    const other = (v: number): number => mixed(seen[v]?.[n] as typeof own) - level;
-    const lagged = (was: number, is: number, share = keep): number => is + (was - is) * share;
-    now.bare = lagged(now.bare, leap);
-    now.slower = lagged(now.slower, leap, keepSlower);
-    now.covered = lagged(now.covered, level - (entry.rock_K[i] as number));
-    now.warmer = lagged(now.warmer, other(1));
-    now.faster = lagged(now.faster, other(2) / Math.log(FASTER));
-    now.parted = lagged(now.parted, own.gas - own.rock);
-    const y = (read_K[i] as number) - (entry.read_K[i] as number) - now.covered;
-    const x = now.bare - now.covered;
-    if (!Number.isFinite(y) || !Number.isFinite(x)) return;
-    const sums = entry.sums[i] as Sums;
-    sums.xx += x * x;
-    sums.xy += x * y;
-    sums.x += x;
-    sums.slower += x * (now.bare - now.slower);
-    sums.warmer += x * now.warmer;
-    sums.faster += x * now.faster;
-    sums.parted += x * now.parted;
-  });
-}
-
-function tell(entry: Entry, model: StoreModel, places: readonly Place[]): (Leap | null)[] {
-  if (entry.told) return [];
-  entry.told = true;
-  return places.map((place, i) => {
-    const { xx, xy, x, slower, warmer, faster, parted } = entry.sums[i] as Sums;
-    if (!(xx > 0)) return null;
-    const own = Math.hypot(
-      SCAN_K / Math.sqrt(xx),
-      (BEFORE_K * x) / xx,
-      (ROCK_K * warmer) / xx,
-      ((PLACE_M / depthOf(model, place)) * faster) / xx,
-      (GAS_SHARE_SIGMA * parted) / xx,
-      slower / xx,
-    );
-    const shared = Math.hypot((GAS_K * warmer) / xx, (RATE_SHARE * faster) / xx, MODEL_SHARE);
-    return Math.hypot(own, shared) > USELESS ? null : { value: xy / xx, own, shared };
-  });
+  place: Place,
+  i: number,
+  lag_m: Float64Array,
+): Leap | null {
+  const leap = entry.gasSum_K / entry.scans - entry.gas_K;
+  const moved =
+    (entry.readSum_K[i] as number) / (entry.readCount[i] as number) - (entry.read_K[i] as number);
+  if (!(Math.abs(leap) >= LEAP_K) || !Number.isFinite(moved)) return null;
+  const tube = model.tubes[place.tube] as TubeModel;
+  const { length_m } = model.store.bed;
+  const warmed =
+    (rockOf(model, entry.beds as Float64Array[], place) - (entry.rock_K[i] as number)) / leap;
+  const x = tube.string.thermocouples[place.sensor]?.position_m as number;
+  const depth = model.store.charge_inlet_at === 'top' ? x : length_m - x;
+  const lag = lag_m[cellOf(tube, length_m, place.sensor)] as number;
+  const left = lag > 0 ? Math.exp(-depth / lag) * (1 - warmed) : 0;
+  const covered = warmed + GAS_SHARE * left;
+  const sigma = Math.hypot(NOISE_K / leap, MODEL_SHARE, GAS_SHARE_SIGMA * left);
+  // Rock that has all but followed is no different from gas.
+  if (UNCOVERED - covered < 3 * sigma) return null;
+  return { value: moved / leap, sigma, covered };
 }

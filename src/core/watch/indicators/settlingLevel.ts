@@ -35,8 +35,6 @@ export interface Level {
   readonly tops: Top[];
   /** Test of all topmost thermocouples together: a bed mostly sinks as a whole. */
   readonly whole: Followed;
-  /** Sum of 1/sigma^2 over the values of that test. */
-  information: number;
   readonly entry: Entry;
 }
 
@@ -73,13 +71,10 @@ export function startLevel(model: StoreModel): Level {
         }),
       ),
   );
-  return {
-    ...noRest(),
-    ...{ tops, whole: startFollowed(), information: 0, entry: startEntry(tops) },
-  };
+  return { ...noRest(), tops, whole: startFollowed(), entry: startEntry(tops) };
 }
 
-const noRest = (): Omit<Level, 'tops' | 'whole' | 'information' | 'entry'> => ({
+const noRest = (): Omit<Level, 'tops' | 'whole' | 'entry'> => ({
   stood_s: 0,
   mean_s: 0,
   scans: 0,

@@ -5,10 +5,6 @@ import { type Followed, shownAs } from './shown.js';
 
 /** Gas and rock must have moved apart by this, or a reading tells nothing of which it follows [K]. */
 export const APART_K = 5;
-/** Share of the gas's movement that a covered junction just below the surface may show. */
-export const COVERED = 0.2;
-/** Rock and gas must stand so many sigmas apart by all values together, or where they hang is not known. */
-const KNOWN_SIGMAS = 3;
 /** Where the bed has sunk as a whole, a thermocouple that last showed more of the gas than this hangs in it. */
 const HANGS = 0.6;
 /** A topmost thermocouple deeper than this tells of the bed's level late, if at all [m]. */
@@ -68,10 +64,7 @@ export function settlingView(
   const now = found(level, model, state);
   const sunk = now.least_m;
   let reason: IndicatorReason | null = null;
-  const sigma = level.information > 0 ? level.information ** -0.5 : null;
-  const vague = sigma !== null && (1 - COVERED) / sigma < KNOWN_SIGMAS;
   if (gas < 0 || now.top_m > DEEP_M) reason = 'not_instrumented';
-  else if (vague) reason = 'too_uncertain';
   const shown = shownAs({
     kind: 'settling',
     subject: model.store.id,
@@ -83,7 +76,7 @@ export function settlingView(
     reason,
     // Less than down to the topmost thermocouple is not seen.
     limit: Math.max(rule.limit, now.top_m),
-    sentence: sentence(model.store.id, now, gas, vague ? sigma : null, rule),
+    sentence: sentence(model.store.id, now, gas, rule),
   });
   const tested = now.followed.test.count > 0;
   return {
@@ -101,14 +94,7 @@ export function settlingView(
   };
 }
 
-/** @param vague sigma of the share of gas in what they show, where that leaves it open */
-function sentence(
-  store: string,
-  now: Found,
-  gas: number,
-  vague: number | null,
-  rule: IndicatorRule,
-): string {
+function sentence(store: string, now: Found, gas: number, rule: IndicatorRule): string {
   const { least_m, most_m, ids, top_m, followed } = now;
   if (least_m !== null)
     return (
@@ -124,8 +110,6 @@ function sentence(
   if (top_m > DEEP_M)
     return `Store ${store}: no thermocouple is close to the top of the bed.${deep}`;
   if (followed.test.count === 0)
-    return `Store ${store}: gas above the bed and rock have not moved apart by ${APART_K} K while standing, nor has gas entered there at another temperature, so where the topmost thermocouples hang is not known.${deep}`;
-  if (vague !== null)
-    return `Store ${store}: gas above the bed and rock have parted so little that the share of gas in what its topmost thermocouples show is known to ${vague.toFixed(1)} only (rock 0, gas 1), so where they hang is not known.${deep}`;
+    return `Store ${store}: gas above the bed and rock have not moved apart by ${APART_K} K while standing, so where the topmost thermocouples hang is not known.${deep}`;
   return `Store ${store}: its topmost thermocouples are in rock.${deep}`;
 }
