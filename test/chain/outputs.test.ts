@@ -223,6 +223,8 @@ describe.skipIf(!mosquitto)('a running daemon', () => {
       '/api/events': ['', '?unit=vellmoor&most=3'],
       '/api/alarms/transitions': ['', '?unit=vellmoor&most=3'],
       '/api/alarms/figures': ['', '?unit=vellmoor'],
+      '/api/units/{unit}/profiles': ['', '?sigma=no&points=2'],
+      '/api/units/{unit}/watch/history': [''],
     };
     const later = (hours: number) => new Date(Date.now() + hours * 3.6e6).toISOString();
     const block = () => ({ mode: 'discharge', power_MW_el: 1, from: later(1), to: later(2) });

@@ -1,3 +1,4 @@
+import { inflateSync } from 'node:zlib';
 import Database from 'better-sqlite3';
 import type { DispatchAnswer, Estimate, ProfileView } from '../../src/core/estimate.js';
 import type { WatchEvent } from '../../src/core/watch/event.js';
@@ -16,8 +17,12 @@ export function readSqlite(file: string, unit: string): Stored {
     const all = <T>(table: string): { time: number; content: T }[] => {
       const rows = database
         .prepare(`SELECT time, json FROM ${table} WHERE unit = ? ORDER BY time`)
-        .all(unit) as { time: number; json: string }[];
-      return rows.map(({ time, json }) => ({ time, content: JSON.parse(json) as T }));
+        .all(unit) as { time: number; json: string | Buffer }[];
+      return rows.map(({ time, json }) => {
+        // Profiles are kept deflated.
+        const text = typeof json === 'string' ? json : inflateSync(json).toString();
+        return { time, content: JSON.parse(text) as T };
+      });
     };
     return {
       estimates: all<Estimate>('estimates').map(({ content }) => content),

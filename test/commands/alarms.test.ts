@@ -56,7 +56,7 @@ describe('what it prints', () => {
     expect(text.split('\n')).toEqual([
       'alarm, high, unacknowledged: u/outlet_near_limit/hot',
       expect.stringMatching(/^ {2}1970-01-01T00:00:00.000Z {2}/),
-      expect.stringMatching(/^ {2}to do within 30 min: Prepare the change-over/),
+      expect.stringMatching(/^ {2}to do within 30 min: Lower the power or prepare the change-over/),
       expect.stringMatching(/^ {2}else: The discharge ends/),
       '',
       'Held back (1):',

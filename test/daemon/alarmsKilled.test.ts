@@ -86,7 +86,7 @@ describe('alarms of a daemon that is killed', () => {
       command('--shelve', idOf('front_spread'), '--for', '9h', '--who', 'ole', '--why', 'x'),
     ]);
     expect(list.stdout).toContain(`acknowledged by mara: ${idOf('front_spread')}`);
-    expect(list.stdout).toMatch(/to do within 30 min: Prepare the change-over/);
+    expect(list.stdout).toMatch(/to do within 30 min: Lower the power or prepare the change-over/);
     expect(list.stdout).toContain(`shelved: ${idOf('gas_temperature_off')}, stands, by mara until`);
     expect(JSON.parse(back.stdout)).toMatchObject({ state: 'unacknowledged', who: 'ole' });
     expect([wrong.code, wrong.stderr]).toEqual([

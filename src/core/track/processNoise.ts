@@ -13,12 +13,7 @@ const SHAPE_PER_METRE_M = 0.02; // [m per sqrt(m)], from the ring truth's isothe
 const SHAPE_LENGTH_M = 0.3;
 const STANDING_K_PER_SQRT_H = 0.05;
 const FLOW_WALK_PER_SQRT_H = 0.01;
-/**
- * ln phi_h comes back to the configured factor as a first-order Gauss-Markov state of the configured
- * sigma; with that of 0.5 it walks by 0.06 per root hour. A walk without a way back left the healthy
- * ranges where fronts are too wide to tell of it (18 times the exchange after a month of partial cycles).
- */
-export const TRANSFER_TIME_H = 140;
+const TRANSFER_WALK_PER_SQRT_H = 0.06;
 const SHARE_WALK_PER_SQRT_H = 0.02;
 /** A leaking valve keeps what it lets through within this share of the prior over a day. */
 const LEAK_WALK_PER_SQRT_DAY = 0.3;
@@ -30,6 +25,16 @@ const HOUR_S = 3600;
  */
 const ADAPT_FROM = 2;
 const ADAPT_MOST = 30;
+
+/**
+ * Time in which ln phi_h comes back to the configured factor [h of flow], as a first-order Gauss-Markov
+ * state of the configured sigma that walks by 0.06 per root hour: 140 h with a sigma of 0.5. A walk
+ * without a way back left what is healthy where fronts are too wide to tell of it (18 times the exchange
+ * after a month of partial cycles).
+ */
+export function transferTime_h(sigma: number): number {
+  return 2 * (sigma / TRANSFER_WALK_PER_SQRT_H) ** 2;
+}
 
 /**
  * What the bed model does not know, per scan, added to a tube's covariance:
@@ -89,10 +94,11 @@ export function addProcessNoise(
   }
   if (flowing) {
     walk(p, size, layout.flow, FLOW_WALK_PER_SQRT_H ** 2 * hours);
-    const transfer = estimator.heat_transfer_factor_sigma ** 2;
-    fade(state, size, cells, layout.transfer, Math.exp(-hours / TRANSFER_TIME_H), transfer);
-    const more = (2 * (adapt * adapt - 1) * hours) / TRANSFER_TIME_H;
-    walk(p, size, layout.transfer, more * transfer);
+    const sigma = estimator.heat_transfer_factor_sigma;
+    const kept = sigma > 0 ? Math.exp(-hours / transferTime_h(sigma)) : 1;
+    fade(state, size, cells, layout.transfer, kept, sigma * sigma);
+    const more = (adapt * adapt - 1) * TRANSFER_WALK_PER_SQRT_H ** 2 * hours;
+    walk(p, size, layout.transfer, sigma > 0 ? more : 0);
     walk(p, size, layout.share, SHARE_WALK_PER_SQRT_H ** 2 * hours);
   } else {
     const step = LEAK_WALK_PER_SQRT_DAY * leakSigma(model);

@@ -119,7 +119,8 @@ describe('cycles', () => {
     const folder = temporaryFolder('cycles');
     opened(folder).stop();
     const old = new SQLite(join(folder, 'history.sqlite'));
-    old.exec('DROP TABLE cycles; DROP TABLE watch; DROP TABLE tellings;');
+    old.exec(`DROP TABLE cycles; DROP TABLE watch; DROP TABLE tellings; DROP TABLE rollup_10min;
+      DROP TABLE rollup_2h; DROP TABLE rollup_1d; DROP TABLE rolled_up;`);
     old.pragma('user_version = 3');
     old.close();
     const history = opened(folder);

@@ -225,9 +225,9 @@ describe.skipIf(!chromium)('the rock sheet, in a real browser', { timeout: 60_00
     const worth = page.locator('th', { hasText: 'If lost' });
     await worth.locator('button').click();
     // The script: 1 % for each share of the length away from the middle.
-    expect(await page.locator('tr[data-sensor]').first().locator('td').nth(4).textContent()).toBe(
-      '0.5',
-    );
+    await expect
+      .poll(() => page.locator('tr[data-sensor]').first().locator('td').nth(4).textContent())
+      .toBe('0.5');
   });
 
   it('offers the report of a span, and refuses one that ends before it begins', async () => {

@@ -1,4 +1,4 @@
-import { TRANSFER_TIME_H } from '../../track/processNoise.js';
+import { transferTime_h } from '../../track/processNoise.js';
 import type { StoreModel, StoreState } from '../../track/storeTracker.js';
 import {
   type FollowRule,
@@ -154,10 +154,12 @@ function ownMotion(
   dt_s: number,
 ): { walk: number; decay: number } {
   const { estimator } = model.tubes[0] as StoreModel['tubes'][number];
-  const times = dt_s / 3600 / TRANSFER_TIME_H;
+  const sigma = estimator.heat_transfer_factor_sigma;
+  if (sigma === 0) return { walk: 0, decay: 1 };
+  const times = dt_s / 3600 / transferTime_h(sigma);
   const decay = Math.exp(-times);
   const more = 2 * (adapt * adapt - 1) * times;
-  return { walk: (1 - decay * decay + more) * estimator.heat_transfer_factor_sigma ** 2, decay };
+  return { walk: (1 - decay * decay + more) * sigma * sigma, decay };
 }
 
 /** ln phi_h, area mean, with the tubes' errors as one and the same. */
