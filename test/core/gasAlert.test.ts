@@ -55,7 +55,9 @@ describe('a gas temperature that is off at an inlet', () => {
 
   it('is remembered over a restart; a state saved before it was looked at starts without it', () => {
     const { state, last } = charged(100, 20, SCANS, Math.round(SCANS / 2));
-    expect(last).toMatch(/reads 100 K more than the rock behind it, at (459\.[5-9]|460\.[0-5]) degC/);
+    expect(last).toMatch(
+      /reads 100 K more than the rock behind it, at (459\.[5-9]|460\.[0-5]) degC/,
+    );
     const saved = saveUnit(state);
     expect(restoreUnit(unit, saved).gas).toEqual(state.gas);
     const { gas: _none, ...before } = saved.state;
