@@ -1,4 +1,5 @@
 import type { WatchEvent } from '../watch/event.js';
+import { toldTime } from '../watch/messages.js';
 import type { AlarmState } from './state.js';
 import type { AlarmTransition, TransitionKind } from './step.js';
 
@@ -43,7 +44,7 @@ export function tellingOf(
     ...event,
     ...{ transition: 'raised', time: new Date(time_ms).toISOString(), again: what },
     raised_at: event.time,
-    message: `Shown again, as ${AGAIN[what]}; raised at ${event.time}: ${event.message}`,
+    message: `Shown again, as ${AGAIN[what]}; raised at ${toldTime(event.time)}: ${event.message}`,
   };
 }
 

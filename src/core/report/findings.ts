@@ -97,7 +97,8 @@ function sensors({ sensors }: ReportData): Finding[] {
         title: `${bad.length} of ${all} thermocouples are not believed`,
         text: 'The estimate goes on without them, with a larger sigma where they hang.',
         evidence: bad.map(
-          ({ id, now }) => `${id}: ${now?.verdict} since ${now?.since}. ${now?.evidence ?? ''}`,
+          ({ id, now }) =>
+            `${id}: ${now?.verdict} since ${minute(now?.since ?? '')}. ${now?.evidence ?? ''}`,
         ),
         check: 'the sensors of the table below, those of one group first',
       },

@@ -48,12 +48,18 @@ export function duration(seconds: number): string {
   return `${(seconds / 3600).toFixed(1)} h`;
 }
 
+/** ISO 8601 UTC as a sentence tells it: `2026-01-31 06:00:30 UTC`. */
+export function toldTime(iso: string): string {
+  return `${iso.slice(0, 19).replace('T', ' ')} UTC`;
+}
+
 export function sensorRaised(store: string, sensor: RejectedSensor): string {
+  const since = toldTime(sensor.since);
   const what =
     sensor.verdict === 'group_fault'
-      ? `What the readings of the group have in common is not believed since ${sensor.since}; their ` +
+      ? `What the readings of the group have in common is not believed since ${since}; their ` +
         'differences are used on.'
-      : `Its readings are left out since ${sensor.since}; the estimate goes on with a larger sigma there.`;
+      : `Its readings are left out since ${since}; the estimate goes on with a larger sigma there.`;
   return (
     `Thermocouple ${sensor.id} in store ${store} ${VERDICT_WORDS[sensor.verdict]} ` +
     `(${sensor.verdict}${sensor.evidence === '' ? '' : `: ${sensor.evidence}`}). ${what} Look at ` +

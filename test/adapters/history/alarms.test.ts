@@ -228,7 +228,7 @@ describe('what is told outside', () => {
     const at = (ms: number) => new Date(ms).toISOString();
     expect(queue.read(9)[1]!.event).toMatchObject({
       ...{ id: ID, again: 'unshelved', time: at(T + 3), raised_at: at(T) },
-      message: `Shown again, as it was taken off the shelf; raised at ${at(T)}: it is so`,
+      message: `Shown again, as it was taken off the shelf; raised at 2026-01-31 00:00:00 UTC: it is so`,
     });
   });
 
