@@ -25,8 +25,9 @@ export interface AssemblerOptions {
  * What became of a reading. `taken`: it stands in its scan. `repeated`: same channel and source
  * time as before in this scan, the later one stands. `out_of_order`: older than one of its channel
  * that came before; it stands only where its scan has no newer one. `surplus`: its scan was closed
- * and had one of this channel already. `late`: its scan was closed without it. `future`: its source
- * time lies beyond the tolerance.
+ * and had one of this channel already. `late`: its scan was closed without it. `carried`: its scan
+ * was closed just before, but the channel reports by exception and this is the newest of it: it holds
+ * from the next scan on. `future`: its source time lies beyond the tolerance.
  */
 export const READING_FATES = [
   'taken',
@@ -34,6 +35,7 @@ export const READING_FATES = [
   'out_of_order',
   'surplus',
   'late',
+  'carried',
   'future',
 ] as const;
 export type ReadingFate = (typeof READING_FATES)[number];
@@ -151,7 +153,7 @@ export class Assembler {
     const believed_ms = believedTime(reading);
     const isFast = time_ms - believed_ms > this.period_ms;
     this.next ??= isFast ? Math.floor(believed_ms / this.period_ms) : index;
-    if (index < this.next) return this.lastIndex[channel] === index ? 'surplus' : 'late';
+    if (index < this.next) return this.takeBehind(reading, index);
     const slot = this.slot(index);
     const before = slot.times[channel]!;
     if (time_ms < before) return 'out_of_order';
@@ -249,6 +251,23 @@ export class Assembler {
     this.slots = new Map(copy.slots);
     this.skipped = copy.skipped;
     this.holdState = copy.hold;
+  }
+
+  /**
+   * A reading whose scan is closed. A change that a channel told by exception is not lost with its
+   * scan: complete scans close before their time is over, and silence after it means that it holds.
+   */
+  private takeBehind({ channel, time_ms, value }: Reading, index: number): ReadingFate {
+    const isExceptional = this.unit.channels[channel]!.reporting.kind === 'by_exception';
+    const isNewest = time_ms > this.newestByChannel[channel]!;
+    if (isExceptional && isNewest) {
+      this.newestByChannel[channel] = time_ms;
+      this.holdState.value[channel] = value;
+      this.holdState.heard_ms[channel] = time_ms;
+      const isJustNow = time_ms >= this.newest_ms - this.options.deadline_ms;
+      if (isJustNow && index === this.next! - 1) return 'carried';
+    }
+    return this.lastIndex[channel] === index ? 'surplus' : 'late';
   }
 
   private isComplete(slot: Slot | undefined): boolean {

@@ -117,6 +117,26 @@ describe('a scan', () => {
 });
 
 describe('a reading', () => {
+  it('by exception, just behind a scan that was complete, holds from the next scan on', () => {
+    const assembler = new Assembler(scanUnit(), OPTIONS);
+    for (const channel of [A, B, C]) add(assembler, channel, 1, channel);
+    expect(drain(assembler)).toHaveLength(1);
+    expect(add(assembler, E, 20, 7)).toBe('carried');
+    for (const channel of [A, B, C]) add(assembler, channel, 31, channel);
+    expect([...drain(assembler)[0]!.scan.values]).toEqual([0, 1, 2, 7]);
+    // One that is older than the deadline has missed its scan, but holds all the same where it is the newest.
+    for (const channel of [A, B, C]) add(assembler, channel, 75, channel);
+    expect(drain(assembler)).toHaveLength(1);
+    expect(add(assembler, E, 62, 8)).toBe('late');
+    expect(add(assembler, E, 61, 9)).toBe('late');
+    for (const channel of [A, B, C]) add(assembler, channel, 91, channel);
+    const [{ scan }] = drain(assembler) as [ClosedScan];
+    expect([[...scan.values], [...scan.held]]).toEqual([
+      [0, 1, 2, 8],
+      [0, 0, 0, 1],
+    ]);
+  });
+
   it('of a scan that was closed without it is late, with it surplus; neither changes anything', () => {
     const assembler = new Assembler(scanUnit(), OPTIONS);
     add(assembler, A, 0, 1);
