@@ -20,6 +20,7 @@ const COMMANDS: Readonly<Record<string, () => Promise<{ register(program: Comman
   tune: () => import('./commands/tune.js'),
   sensors: () => import('./commands/sensors.js'),
   check: () => import('./commands/check.js'),
+  admit: () => import('./commands/admit.js'),
 };
 
 function fail(thrown: unknown): void {

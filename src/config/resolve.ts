@@ -34,6 +34,7 @@ export function resolveSite(site: SiteBlock, baseFolder: string, secrets: Secret
       protocol: mqtt.protocol,
       qos: mqtt.qos,
       out_prefix: mqtt.out_prefix,
+      tls: secrets.mqtt_tls,
     },
     influx:
       influx === undefined
@@ -44,11 +45,23 @@ export function resolveSite(site: SiteBlock, baseFolder: string, secrets: Secret
             username: influx.username ?? null,
             password: secrets.influx,
             batch_points: influx.batch_points,
+            tls: secrets.influx_tls,
           },
     alarms,
     notify: { webhooks: notify.webhooks.map((webhook) => resolveWebhook(webhook, secrets)) },
     store: { ...store, folder: resolvePath(baseFolder, store.folder) },
-    http,
+    http: {
+      host: http.host,
+      port: http.port,
+      path_prefix: http.path_prefix,
+      tokens: [...http.tokens, ...secrets.tokens],
+      tokens_inline: http.tokens,
+      tokens_file:
+        http.tokens_file === undefined ? null : resolvePath(baseFolder, http.tokens_file),
+      login_by_proxy: http.login_by_proxy,
+      tls: secrets.http_tls,
+    },
+    secret_files: secrets.files,
   };
 }
 

@@ -1,3 +1,4 @@
+import type { AccessToken } from '../access/token.js';
 import type { UnitDefinition } from '../core/definitions.js';
 import type { EventKind } from '../core/watch/event.js';
 
@@ -9,6 +10,31 @@ export interface ChannelSource {
   readonly payload: 'value' | 'array';
   /** Channel ids in the order of the array; exactly one for `value`. */
   readonly channels: readonly string[];
+}
+
+/** Certificates towards a server, as PEM. */
+export interface ClientTls {
+  /** Authorities that are believed; null: those that Node brings along. */
+  readonly ca: string | null;
+  /** Own certificate and its key; null: none is shown. */
+  readonly cert: string | null;
+  readonly key: string | null;
+  /** Name that the certificate has to be for; null: the host of the url. */
+  readonly server_name: string | null;
+}
+
+/** Certificate of the own server: the files, and what stood in them at the start. */
+export interface ServerTls {
+  readonly cert_file: string;
+  readonly key_file: string;
+  readonly cert: string;
+  readonly key: string;
+}
+
+/** A file that holds a secret, and the key that names it. */
+export interface SecretFile {
+  readonly path: string;
+  readonly file: string;
 }
 
 export interface MqttConfig {
@@ -24,6 +50,8 @@ export interface MqttConfig {
   readonly qos: 0 | 1;
   /** Topics of what rockhour publishes start with this. */
   readonly out_prefix: string;
+  /** Absent or null: nothing beyond what the url says. */
+  readonly tls?: ClientTls | null;
 }
 
 export interface InfluxConfig {
@@ -32,6 +60,8 @@ export interface InfluxConfig {
   readonly username: string | null;
   readonly password: string | null;
   readonly batch_points: number;
+  /** Absent or null: nothing beyond what the url says. */
+  readonly tls?: ClientTls | null;
 }
 
 export interface StoreConfig {
@@ -49,6 +79,15 @@ export interface HttpConfig {
   readonly host: string;
   readonly port: number;
   readonly path_prefix: string;
+  /** Those of the file and those of tokens_file; absent or empty: nobody is asked who they are. */
+  readonly tokens?: readonly AccessToken[];
+  /** Tokens that stand in the configuration itself, and the file of the others. */
+  readonly tokens_inline?: readonly AccessToken[];
+  readonly tokens_file?: string | null;
+  /** A proxy in front does the log-in: any name of the host is answered to. */
+  readonly login_by_proxy?: boolean;
+  /** Absent or null: plain HTTP. */
+  readonly tls?: ServerTls | null;
 }
 
 /** A receiver of alarms and alerts over HTTP. */
@@ -97,4 +136,6 @@ export interface SiteConfig {
   readonly notify?: NotifyConfig;
   readonly store: StoreConfig;
   readonly http: HttpConfig;
+  /** Files with passwords and keys, whose permissions are looked at; absent: none. */
+  readonly secret_files?: readonly SecretFile[];
 }

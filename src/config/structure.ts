@@ -117,6 +117,9 @@ function unknownKey(root: z.ZodType, data: unknown, path: Path, key: string): Ra
 
 function keyHint(key: string, known: readonly string[], near: string | null): string | null {
   if (/pass|secret|token/i.test(key)) {
+    if (known.includes('tokens') || known.includes('hash')) {
+      return 'secrets do not belong in this file: rockhour admit makes a token, of which the hash alone stands in http.tokens';
+    }
     return known.includes('password_file')
       ? 'secrets do not belong in this file: name a file with password_file or an environment variable with password_env'
       : 'secrets do not belong in this file';

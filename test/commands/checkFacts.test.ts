@@ -161,13 +161,20 @@ describe('notes on a site', () => {
 
   it('warn of a page and a broker that are open to a network', () => {
     const site = siteOf('demo', (d) => {
-      d.http = { host: '0.0.0.0' };
+      d.http = {
+        host: '0.0.0.0',
+        tokens: [{ name: 'a', role: 'view', hash: `sha256:${'0'.repeat(64)}` }],
+      };
       d.mqtt.embedded_host = 'plant-gateway';
     });
     expect(siteNotes(site).map((note) => note.split(':')[0])).toEqual([
       'http.host 0.0.0.0',
       'mqtt.embedded_host plant-gateway',
     ]);
+    const behind = siteOf('demo', (d) => {
+      d.http = { host: '0.0.0.0', login_by_proxy: true };
+    });
+    expect(siteNotes(behind).join()).toMatch(/asks nobody who they are .* past the proxy/);
   });
 
   it('warn of passwords on an unencrypted line', () => {

@@ -40,7 +40,10 @@ describe('a sound site', () => {
     });
     expect(clock_tolerance_s).toBe(300);
     expect(influx).toBeNull();
-    expect(http).toEqual({ host: '127.0.0.1', port: 8080, path_prefix: '' });
+    expect(http).toEqual({
+      ...{ host: '127.0.0.1', port: 8080, path_prefix: '', tls: null, login_by_proxy: false },
+      ...{ tokens: [], tokens_inline: [], tokens_file: null },
+    });
     expect(store.folder).toMatch(/\/config\/data$/);
   });
 

@@ -14,12 +14,14 @@ const errors = /^src\/(errors|log)$/;
 const core = /^src\/core\//;
 const configTypes = /^src\/config\/site$/;
 const node = /^node$/;
+/** Tokens and roles: what HTTP and the own broker both ask for. */
+const access = /^src\/access\//;
 
 /** An adapter: core, types of config, errors, log, its own files and its own library. */
 function adapter(name: string, ...libraries: RegExp[]): Rule {
   return {
     of: new RegExp(`^src/adapters/${name}/`),
-    may: [core, errors, node, new RegExp(`^src/adapters/${name}/`), ...libraries],
+    may: [core, errors, node, access, new RegExp(`^src/adapters/${name}/`), ...libraries],
     mayTypes: [configTypes],
   };
 }
@@ -59,7 +61,11 @@ const RULES: readonly Rule[] = [
   adapter('recording'),
   adapter('notify'),
   adapter('report', /^d3-(scale|shape)$/),
-  { of: /^src\/config\//, may: [/^src\/config\//, core, /^src\/errors$/, /^zod$/, /^yaml$/, node] },
+  { of: /^src\/access\//, may: [access, /^src\/errors$/, node] },
+  {
+    of: /^src\/config\//,
+    may: [/^src\/config\//, access, core, /^src\/errors$/, /^zod$/, /^yaml$/, node],
+  },
   {
     of: /^src\/plant\//,
     may: [
@@ -77,6 +83,7 @@ const RULES: readonly Rule[] = [
       /^src\/commands\//,
       /^src\/daemon(\/|$)/,
       /^src\/config\//,
+      access,
       core,
       /^src\/adapters\/(recording|history|report)\//,
       errors,

@@ -1,29 +1,70 @@
-import { isIP } from 'node:net';
-import type { SiteConfig } from '../../config/site.js';
+import { statSync } from 'node:fs';
+import { staysHere } from '../../config/loopback.js';
+import type { SecretFile, SiteConfig } from '../../config/site.js';
+import { certificatesOf } from '../../config/tlsFiles.js';
+
+/** A certificate that ends sooner than this is told [ms]. */
+const SOON_MS = 30 * 86_400_000;
 
 /** What a person should look at who opens a site to a network; not faults. */
-export function siteNotes(site: SiteConfig): string[] {
+export function siteNotes(site: SiteConfig, now_ms = Date.now()): string[] {
+  const { http, mqtt, influx } = site;
   const notes: string[] = [];
-  if (!staysHere(site.http.host)) {
+  const hasTokens = (http.tokens ?? []).length > 0;
+  if (!staysHere(http.host) && http.login_by_proxy) {
     notes.push(
-      `http.host ${site.http.host}: page and API have no log-in; whoever reaches that address sees all and may acknowledge alarms`,
+      `http.host ${http.host}: rockhour asks nobody who they are (http.login_by_proxy); whoever reaches that address past the proxy sees all and may acknowledge alarms`,
     );
   }
-  if (site.mqtt.url === null && !staysHere(site.mqtt.embedded_host)) {
+  if (!staysHere(http.host) && hasTokens && (http.tls ?? null) === null) {
     notes.push(
-      `mqtt.embedded_host ${site.mqtt.embedded_host}: its own broker asks nobody who they are; whoever reaches it may send readings`,
+      `http.host ${http.host}: without http.tls tokens and figures cross the network in the clear`,
+    );
+  }
+  if (mqtt.url === null && !staysHere(mqtt.embedded_host)) {
+    notes.push(
+      `mqtt.embedded_host ${mqtt.embedded_host}: its own broker has no TLS; tokens and readings cross the network in the clear`,
     );
   }
   const plain = (url: string | null | undefined) => /^(mqtt|tcp|ws|http):/.test(url ?? '');
-  if (site.mqtt.password !== null && plain(site.mqtt.url)) {
+  if (mqtt.password !== null && plain(mqtt.url)) {
     notes.push('mqtt.url is not encrypted: the password crosses the network in the clear');
   }
-  if (site.influx !== null && site.influx.password !== null && plain(site.influx.url)) {
+  if (influx !== null && influx.password !== null && plain(influx.url)) {
     notes.push('influx.url is not encrypted: the password crosses the network in the clear');
   }
-  return notes;
+  return [
+    ...notes,
+    ...certificateNotes('http.tls.cert_file', http.tls?.cert, now_ms),
+    ...certificateNotes('mqtt.tls.cert_file', mqtt.tls?.cert, now_ms),
+    ...certificateNotes('mqtt.tls.ca_file', mqtt.tls?.ca, now_ms),
+    ...certificateNotes('influx.tls.ca_file', influx?.tls?.ca, now_ms),
+    ...(site.secret_files ?? []).flatMap(openFileNotes),
+  ];
 }
 
-function staysHere(host: string): boolean {
-  return host === 'localhost' || host === '::1' || (isIP(host) === 4 && host.startsWith('127.'));
+/** A certificate that is no longer, not yet or not for long believed by others. */
+function certificateNotes(path: string, pem: string | null | undefined, now_ms: number): string[] {
+  const day = (text: string) => new Date(text).toISOString().slice(0, 10);
+  return (certificatesOf(pem ?? '') ?? []).flatMap(({ validFrom, validTo }) => {
+    if (Date.parse(validTo) < now_ms) return [`${path}: a certificate ended on ${day(validTo)}`];
+    if (Date.parse(validFrom) > now_ms) {
+      return [`${path}: a certificate only begins on ${day(validFrom)}`];
+    }
+    const ends = Date.parse(validTo) - now_ms < SOON_MS;
+    return ends ? [`${path}: a certificate ends on ${day(validTo)}`] : [];
+  });
+}
+
+/** A secret that every user of the machine may read. */
+function openFileNotes({ path, file }: SecretFile): string[] {
+  try {
+    const mode = statSync(file).mode & 0o777;
+    if ((mode & 0o004) === 0) return [];
+    const rights = mode.toString(8).padStart(3, '0');
+    return [`${path}: every user of this machine may read the file (${rights}; 600 is meant)`];
+  } catch {
+    // It was read a moment ago; what is gone now is a fault of the next look.
+    return [];
+  }
 }

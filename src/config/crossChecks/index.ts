@@ -1,6 +1,7 @@
 import { channelTopic, expandString } from '../expand.js';
 import { type Path, pathText } from '../faults.js';
 import type { SiteBlock, UnitBlock } from '../schema/site.js';
+import { accessFaults } from './access.js';
 import { channelFaults } from './channels.js';
 import { connectionFaults } from './connection.js';
 import { type CrossFault, cross, repeated } from './cross.js';
@@ -21,6 +22,7 @@ export function crossFaults(site: SiteBlock): CrossFault[] {
     ...site.units.flatMap((unit, u) => unitFaults(unit, unitPath(u))),
     ...topicFaults(site),
     ...serviceFaults(site),
+    ...accessFaults(site),
   ];
 }
 

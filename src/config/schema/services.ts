@@ -1,6 +1,9 @@
 import { z } from 'zod';
+import { ROLES } from '../../access/role.js';
+import { HASH_PATTERN, HASH_WORDS, NAME_PATTERN, NAME_WORDS } from '../../access/token.js';
+import { MOST_TOKENS } from '../../access/tokensFile.js';
 import { topic } from './channels.js';
-import { key, positive, worded } from './key.js';
+import { key, positive, section, worded } from './key.js';
 
 const port = () => z.int().min(0).max(65535);
 const login = {
@@ -33,6 +36,33 @@ const login = {
   ).optional(),
 };
 
+const file = (what: string, example: string, otherwise: string) =>
+  key(
+    z.string().min(1).max(1000),
+    '-',
+    `${what}; relative to this configuration.`,
+    example,
+    otherwise,
+  );
+const ca_file = file(
+  'PEM file of the authorities whose certificates are believed',
+  '/etc/rockhour/ca.pem',
+  'those that Node brings along',
+).optional();
+const server_name = key(
+  worded(
+    z
+      .string()
+      .regex(/^[A-Za-z0-9.-]+$/)
+      .max(253),
+    'a host name',
+  ),
+  '-',
+  "Name that the server's certificate has to be for.",
+  'broker.plant',
+  'the host of the url',
+).optional();
+
 /** Broker that the readings come from. */
 export const mqttSchema = z.strictObject({
   url: key(
@@ -56,6 +86,26 @@ export const mqttSchema = z.strictObject({
     'rockhour',
   ),
   ...login,
+  tls: section(
+    z
+      .strictObject({
+        ca_file,
+        cert_file: file(
+          "PEM file of rockhour's own certificate, where the broker asks for one",
+          '/etc/rockhour/client.pem',
+          'no certificate is shown',
+        ).optional(),
+        key_file: file(
+          'PEM file of the private key to cert_file, without a passphrase',
+          '/etc/rockhour/client.key',
+          'no certificate is shown',
+        ).optional(),
+        server_name,
+      })
+      .optional(),
+    'Certificates for a url that begins with mqtts, tls or wss; TLS 1.2 at least.',
+    'the authorities that Node brings along',
+  ),
   protocol: key(
     z.union([z.literal(4), z.literal(5)]),
     '-',
@@ -100,6 +150,11 @@ export const influxSchema = z.strictObject({
     'rockhour',
   ).default('rockhour'),
   ...login,
+  tls: section(
+    z.strictObject({ ca_file, server_name }).optional(),
+    'Certificates for a url that begins with https; TLS 1.2 at least.',
+    'the authorities that Node brings along',
+  ),
   batch_points: key(z.int().min(1).max(50000), '-', 'Most points in one request.', 5000).default(
     5000,
   ),
@@ -131,12 +186,33 @@ export const localStoreSchema = z.strictObject({
   ).default(600),
 });
 
+const token = z.strictObject({
+  name: key(
+    worded(z.string().regex(NAME_PATTERN), NAME_WORDS),
+    '-',
+    'Whose token it is: recorded with what is done, and the user name at its own broker.',
+    'control_room',
+  ),
+  role: key(
+    z.enum(ROLES),
+    '-',
+    'view, acknowledge or configure, each with all before it; feed: readings in over its own broker.',
+    'acknowledge',
+  ),
+  hash: key(
+    worded(z.string().regex(HASH_PATTERN), HASH_WORDS),
+    '-',
+    'SHA-256 of the token, as rockhour admit prints it.',
+    `sha256:${'0'.repeat(64)}`,
+  ),
+});
+
 /** Page and API. */
 export const httpSchema = z.strictObject({
   host: key(
     z.string().min(1).max(255),
     '-',
-    'Where page and API listen. There is no log-in: beyond this machine put a proxy before it.',
+    'Where page and API listen; beyond this machine only with tokens, or with login_by_proxy.',
     '127.0.0.1',
   ).default('127.0.0.1'),
   port: key(port(), '-', 'Port; 0 = any free one.', 8080).default(8080),
@@ -152,4 +228,38 @@ export const httpSchema = z.strictObject({
     'Path before all routes, for a proxy.',
     '/rockhour',
   ).default(''),
+  tokens: section(
+    z.array(section(token, 'A token.')).max(MOST_TOKENS).default([]),
+    'Who may come in, to page, API and its own broker; made by rockhour admit.',
+    'nobody is asked who they are',
+  ),
+  tokens_file: file(
+    'File with a line NAME ROLE HASH for each token, beside tokens; read again when it changes',
+    '/etc/rockhour/tokens',
+    'tokens alone',
+  ).optional(),
+  login_by_proxy: key(
+    z.boolean(),
+    '-',
+    'true: there are no tokens, and a proxy in front of rockhour does the log-in.',
+    false,
+  ).default(false),
+  tls: section(
+    z
+      .strictObject({
+        cert_file: file(
+          "PEM file of the server's certificate and those that vouch for it",
+          '/etc/rockhour/server.pem',
+          'required',
+        ),
+        key_file: file(
+          'PEM file of the private key to cert_file, without a passphrase',
+          '/etc/rockhour/server.key',
+          'required',
+        ),
+      })
+      .optional(),
+    'Certificate of page and API, read again when it changes; TLS 1.2 at least.',
+    'plain HTTP',
+  ),
 });
