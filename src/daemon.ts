@@ -5,6 +5,7 @@ import { Journal } from './adapters/history/journal.js';
 import { createHttpServer } from './adapters/http/server.js';
 import type { HealthPart, PlantService } from './adapters/http/service.js';
 import { Intake } from './adapters/mqtt/intake.js';
+import { readSource, type SiteSource } from './config/load.js';
 import type { SiteConfig } from './config/site.js';
 import { AlarmPart, DEFAULT_ALARMS } from './daemon/alarmPart.js';
 import { catchUp } from './daemon/catchUp.js';
@@ -40,8 +41,8 @@ export {
 export interface DaemonOptions {
   readonly log: Log;
   readonly version: string;
-  /** File that `site` was read from: the worker reads it as well. null: no worker. */
-  readonly configPath: string | null;
+  /** File that `site` was read from, or that as it was read: workers need it. null: no worker. */
+  readonly configPath: string | SiteSource | null;
   readonly core?: Core;
   readonly clock?: DaemonClock;
   /** false: no page and no API. */
@@ -109,7 +110,7 @@ class RockhourDaemon implements Daemon {
     const history = new History(join(folder, 'history.sqlite'), site.store, alarmsConfig);
     this.journal = journal;
     this.history = history;
-    this.questions = new Questions(core, options.configPath);
+    this.questions = new Questions(core, sourceOf(options.configPath));
     this.runners = makeRunners(site, core);
     const shortest_s = Math.min(...site.units.map((unit) => unit.scan_period_s));
     const poll_ms = Math.min(1000, Math.max(20, (shortest_s * 100) / clock.speed));
@@ -303,4 +304,8 @@ class RockhourDaemon implements Daemon {
       ),
     ];
   }
+}
+
+function sourceOf(config: DaemonOptions['configPath']): SiteSource | null {
+  return typeof config === 'string' ? readSource(config) : config;
 }

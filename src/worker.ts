@@ -1,5 +1,5 @@
 import { parentPort, workerData } from 'node:worker_threads';
-import { loadSite } from './config/load.js';
+import { type SiteSource, siteOf } from './config/load.js';
 import type { UnitDefinition } from './core/definitions.js';
 import { answerPlan, type PlanAnswer, type PlanQuestion } from './core/plan/ask.js';
 import { hoursAt, restoreUnit, type UnitSnapshot } from './core/unit.js';
@@ -60,11 +60,11 @@ function answerTo(unit: UnitDefinition, question: WorkerQuestion): Answer {
 
 /**
  * Answers questions that take long, beside the thread that takes scans in. Definitions hold
- * functions, which no message can carry: the worker reads the configuration itself.
+ * functions, which no message can carry: the worker makes them from the same text of the configuration,
+ * whatever stands in the file by now.
  */
 function serve(port: NonNullable<typeof parentPort>): void {
-  const { configPath } = workerData as { configPath: string };
-  const units = new Map(loadSite(configPath).units.map((unit) => [unit.id, unit]));
+  const units = new Map(siteOf(workerData as SiteSource).units.map((unit) => [unit.id, unit]));
   port.on('message', ({ id, question }: NumberedQuestion) => {
     let reply: WorkerReply;
     try {

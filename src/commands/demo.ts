@@ -7,7 +7,8 @@ import { RockhourError } from '../errors.js';
 import { createLog } from '../log.js';
 import { Interrupt, interrupted } from './interrupt.js';
 import { startProgress } from './progress.js';
-import { askedToStop, logLevel, readyLine } from './run.js';
+import { logLevel, readyLine } from './run.js';
+import { askedToStop } from './stopping.js';
 import { table } from './table.js';
 import { packageVersion } from './version.js';
 

@@ -1,18 +1,17 @@
 import type { Command } from 'commander';
-import { loadSite } from '../config/load.js';
+import { readSource, siteOf } from '../config/load.js';
 import type { SiteConfig } from '../config/site.js';
-import type { Daemon, DaemonPlaces } from '../daemon.js';
+import type { DaemonPlaces } from '../daemon.js';
 import { RockhourError } from '../errors.js';
 import { createLog, LOG_LEVELS, type LogLevel } from '../log.js';
+import { Reloading } from './reload.js';
+import { askedToStop, stopInTime } from './stopping.js';
 import { packageVersion } from './version.js';
 
 interface RunOptions {
   readonly config: string;
   readonly logLevel: string;
 }
-
-/** A stop takes no longer than this [ms]; what hangs is left behind. */
-const STOP_MS = 5000;
 
 export function logLevel(text: string): LogLevel {
   const level = LOG_LEVELS.find((one) => one === text);
@@ -36,47 +35,31 @@ export function readyLine(site: SiteConfig, places: DaemonPlaces): string {
   return `ready page=${url ?? 'none'} broker=${broker} database=${JSON.stringify(folder)} units=${units}`;
 }
 
-/** Resolves at the first SIGTERM or SIGINT; a second one ends the process at once. */
-export function askedToStop(): Promise<NodeJS.Signals> {
-  return new Promise((resolve) => {
-    let isAsked = false;
-    for (const signal of ['SIGTERM', 'SIGINT'] as const) {
-      process.on(signal, () => {
-        if (isAsked) process.exit(130);
-        isAsked = true;
-        resolve(signal);
-      });
-    }
-  });
-}
-
-/** Stops within five seconds, whatever hangs. */
-export async function stopInTime(daemon: Daemon): Promise<void> {
-  let timer: NodeJS.Timeout | undefined;
-  const limit = new Promise<void>((resolve) => {
-    timer = setTimeout(resolve, STOP_MS - 500);
-  });
-  await Promise.race([daemon.stop(), limit]);
-  clearTimeout(timer);
-}
-
 async function run(options: RunOptions): Promise<void> {
-  const site = loadSite(options.config);
+  const source = readSource(options.config);
+  const site = siteOf(source);
   const log = createLog({ level: logLevel(options.logLevel) });
   // Servers and clients take half a second to load, which a refusal above need not wait for.
   const { createDaemon } = await import('../daemon.js');
-  const daemon = createDaemon(site, {
+  let lose: (thrown: unknown) => void = () => undefined;
+  const lost = new Promise<never>((_, reject) => {
+    lose = reject;
+  });
+  // While it starts nobody looks at it yet.
+  lost.catch(() => undefined);
+  const reloading = new Reloading({
     log,
-    version: packageVersion(),
-    configPath: options.config,
+    lost: (thrown) => lose(thrown),
+    create: (next) =>
+      createDaemon(next.site, { log, version: packageVersion(), configPath: next.source }),
+    up: (next, places) => process.stdout.write(`${readyLine(next, places)}\n`),
   });
   const asked = askedToStop();
-  const places = await Promise.race([daemon.start(), asked]);
-  if (typeof places !== 'string') {
-    process.stdout.write(`${readyLine(site, places)}\n`);
-    log.info(`${await asked}: stops`);
-  }
-  await stopInTime(daemon);
+  // Before the start: a signal without a handler would end the process.
+  process.on('SIGHUP', () => void reloading.reload(options.config));
+  await Promise.race([reloading.start({ source, site }), asked]);
+  log.info(`${await Promise.race([asked, lost])}: stops`);
+  await stopInTime(reloading);
   // Sockets of a service that hangs would keep the process.
   process.exit();
 }
@@ -93,7 +76,8 @@ export function register(program: Command): void {
         '',
         'When all is up, one line goes to standard output:',
         '  ready page=URL broker=URL database="FOLDER" units=ID,ID',
-        'The log goes to standard error. SIGTERM or SIGINT stop it cleanly within 5 s.',
+        'The log goes to standard error. SIGTERM or SIGINT stop it cleanly within 5 s. SIGHUP reads',
+        'the configuration again and goes on by it with the state kept; one with faults changes nothing.',
       ].join('\n'),
     )
     .action(run);

@@ -10,17 +10,33 @@ export { type Parsed, parseSite } from './parse.js';
 /** A site file is text that people write; one that is larger is something else. */
 const MOST_BYTES = 4 * 1024 * 1024;
 
+/** A site file as it was read: what a thread needs to come to the same configuration later. */
+export interface SiteSource {
+  readonly path: string;
+  readonly text: string;
+}
+
+/** @throws ConfigFault where the file cannot be read */
+export function readSource(path: string): SiteSource {
+  return { path, text: readText(path) };
+}
+
+/** @throws ConfigFault with every fault of the text at once */
+export function siteOf({ path, text }: SiteSource): SiteConfig {
+  const parsed = parseSite(text, dirname(resolve(path)));
+  if (parsed.faults !== undefined) {
+    throw new ConfigFault('CONFIG_INVALID', path, parsed.faults, parsed.more_may_follow);
+  }
+  return parsed.site;
+}
+
 /**
  * Reads a site file and gives its frozen configuration.
  *
  * @throws ConfigFault with every fault of the file at once, also where it cannot be read
  */
 export function loadSite(path: string): SiteConfig {
-  const parsed = parseSite(readText(path), dirname(resolve(path)));
-  if (parsed.faults !== undefined) {
-    throw new ConfigFault('CONFIG_INVALID', path, parsed.faults, parsed.more_may_follow);
-  }
-  return parsed.site;
+  return siteOf(readSource(path));
 }
 
 function readText(path: string): string {

@@ -1,4 +1,5 @@
 import { setImmediate } from 'node:timers/promises';
+import type { SiteSource } from '../config/load.js';
 import type { UnitDefinition } from '../core/definitions.js';
 import type { DispatchAnswer } from '../core/estimate.js';
 import type { PlanAnswer, PlanQuestion } from '../core/plan/ask.js';
@@ -25,10 +26,10 @@ export class Questions {
 
   constructor(
     private readonly core: Core,
-    configPath: string | null,
+    source: SiteSource | null,
   ) {
-    this.quick = configPath === null ? null : new WorkerLine(configPath);
-    this.slow = configPath === null ? null : new WorkerLine(configPath);
+    this.quick = source === null ? null : new WorkerLine(source);
+    this.slow = source === null ? null : new WorkerLine(source);
   }
 
   /** false: questions are answered in this thread. */

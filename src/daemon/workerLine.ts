@@ -1,4 +1,5 @@
 import { Worker } from 'node:worker_threads';
+import type { SiteSource } from '../config/load.js';
 import { RockhourError } from '../errors.js';
 import type { Answer, NumberedQuestion, WorkerQuestion, WorkerReply } from '../worker.js';
 
@@ -16,7 +17,7 @@ export class WorkerLine {
   private readonly waiting = new Map<number, Waiting>();
   private next = 1;
 
-  constructor(private readonly configPath: string) {}
+  constructor(private readonly source: SiteSource) {}
 
   async ask(question: WorkerQuestion): Promise<Answer> {
     if (this.waiting.size >= MOST_WAITING) {
@@ -41,7 +42,7 @@ export class WorkerLine {
 
   private start(): Worker {
     if (this.worker) return this.worker;
-    const worker = startWorker({ configPath: this.configPath });
+    const worker = startWorker(this.source);
     worker.on('message', (reply: WorkerReply) => this.settle(reply));
     worker.on('error', (error) => this.lost(worker, error));
     worker.on('exit', (code) => this.lost(worker, new Error(`the worker ended with code ${code}`)));
@@ -70,7 +71,7 @@ export class WorkerLine {
 }
 
 /** From the sources, as in development, the worker needs the loader for TypeScript first. */
-function startWorker(workerData: object): Worker {
+function startWorker(workerData: SiteSource): Worker {
   if (!import.meta.url.endsWith('.ts')) {
     return new Worker(new URL('../worker.js', import.meta.url), { workerData });
   }

@@ -35,6 +35,10 @@ export class RockhourProcess {
     );
   }
 
+  signal(signal: NodeJS.Signals): void {
+    this.child.kill(signal);
+  }
+
   /** Sends a signal and gives the exit code. */
   async end(signal: NodeJS.Signals): Promise<number | null> {
     this.child.kill(signal);

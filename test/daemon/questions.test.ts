@@ -1,7 +1,7 @@
 import { readFileSync, writeFileSync } from 'node:fs';
 import { join } from 'node:path';
 import { afterEach, describe, expect, it } from 'vitest';
-import { loadSite } from '../../src/config/load.js';
+import { loadSite, readSource } from '../../src/config/load.js';
 import { saveUnit, startUnit } from '../../src/core/unit.js';
 import { type Core, realCore } from '../../src/daemon/core.js';
 import { Questions } from '../../src/daemon/questions.js';
@@ -19,7 +19,7 @@ const unit = loadSite(config).units[0]!;
 const open: Questions[] = [];
 
 function questions(core: Core, configPath: string | null): Questions {
-  const made = new Questions(core, configPath);
+  const made = new Questions(core, configPath === null ? null : readSource(configPath));
   open.push(made);
   return made;
 }
@@ -47,6 +47,15 @@ describe('questions to worker threads', () => {
     expect(worth!.stores.map((store) => store.sensors.length)).toEqual([42, 42]);
     // Nothing has been read yet: there is no state to look ahead from.
     expect(await asked.sensors(unit, saveUnit(startUnit(unit)))).toBeNull();
+  });
+
+  it('are answered by the configuration that the daemon runs by, whatever the file says by now', async () => {
+    const changing = join(temporaryFolder('questions'), 'plant.yaml');
+    writeFileSync(changing, readFileSync(config, 'utf8'));
+    const asked = questions(realCore, changing);
+    writeFileSync(changing, 'units: being edited');
+    const hours = await asked.hours(unit, saveUnit(startUnit(unit)), [1.8e6]);
+    expect(hours).toMatchObject([{ power_MW: 1.8, hours: { p90: 0 } }]);
   });
 
   it('say what went wrong, and are answered again afterwards', async () => {
