@@ -4,6 +4,7 @@ import { ageNow, type UnitEntry } from '../lib/model.js';
 import { model, select } from '../lib/page.js';
 import { hrefOf, route, SHEETS, type Sheet } from '../lib/route.js';
 import { TRUST_WORDS, trustOf } from '../lib/trust.js';
+import { viewport } from '../parts/viewport.js';
 
 const SHEET_WORDS: Readonly<Record<Sheet, string>> = {
   now: 'Now',
@@ -21,8 +22,10 @@ export function Head() {
       </p>
       <SheetLinks />
       <Units />
-      <OpenCount />
-      <Freshness />
+      <div class="watchline">
+        <OpenCount />
+        <Freshness />
+      </div>
     </header>
   );
 }
@@ -44,8 +47,23 @@ function SheetLinks() {
   );
 }
 
-/** So many units have a button each; of more one is chosen from a list. */
+/** So many units at the most have a button each, on a narrow screen fewer. */
 const BUTTONS_MOST = 6;
+const NARROW_MOST = 3;
+const NARROW_PX = 760;
+/** What else stands in the head, and what a button has around its letters, in sizes of type. */
+const HEAD_REM = 50;
+const BUTTON_REM = 6;
+const LETTER_REM = 0.55;
+
+/** Whether the units have room for a button each, so that the head stays in one row. */
+function haveButtons(units: readonly UnitEntry[], site: string): boolean {
+  const { width, rem } = viewport.value;
+  if (width < NARROW_PX) return units.length <= NARROW_MOST;
+  const letters = units.reduce((sum, { name }) => sum + name.length, site.length);
+  const needed_rem = HEAD_REM + BUTTON_REM * units.length + LETTER_REM * letters;
+  return units.length <= BUTTONS_MOST && needed_rem * rem <= width;
+}
 
 /** `2 open, stale` of a unit; '' where there is nothing to say. */
 function notesOf(entry: UnitEntry): string {
@@ -57,7 +75,7 @@ function notesOf(entry: UnitEntry): string {
 /** The units, each with what is open there and whether its data are stale. */
 function Units() {
   const units = model.units.value;
-  if (units.length <= BUTTONS_MOST) return <UnitButtons />;
+  if (haveButtons(units, model.site.value)) return <UnitButtons />;
   return (
     <nav id="units" aria-label="Units">
       <select
@@ -105,8 +123,14 @@ function OpenCount() {
   const { words, alarms } = openWords(model.standing.value);
   if (words === '') return null;
   return (
-    <a id="open-count" href={hrefOf('now', 'alarms')} data-alarms={alarms > 0 ? '' : undefined}>
-      {`${alarms > 0 ? '▲' : '■'} ${words} to acknowledge`}
+    <a
+      id="open-count"
+      href={hrefOf('now', 'alarms')}
+      data-alarms={alarms > 0 ? '' : undefined}
+      aria-label={`${words} to acknowledge`}
+    >
+      {`${alarms > 0 ? '▲' : '■'} ${words}`}
+      <span class="what"> to acknowledge</span>
     </a>
   );
 }
@@ -127,8 +151,8 @@ function Freshness() {
       <p>
         <strong data-field="trust">{TRUST_WORDS[trust]}</strong>
         {' · '}
-        <span class="what">newest reading </span>
-        <span data-field="age">{age_s === null ? 'not there yet' : `${ageText(age_s)} old`}</span>
+        {age_s !== null && <span class="what">newest reading </span>}
+        <span data-field="age">{age_s === null ? 'no reading yet' : `${ageText(age_s)} old`}</span>
       </p>
     </div>
   );

@@ -69,7 +69,7 @@ class BedDrawing {
     this.rubble.update(profile);
     this.moving.replaceChildren(
       gasArrows(frame, mode),
-      tubeFronts(frame, rings, own),
+      tubeFronts(frame, rings, own, this.store.length_m),
       strings(frame, rings, profile?.readings ?? []),
     );
     const fronts = own?.fronts ?? [];

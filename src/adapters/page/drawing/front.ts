@@ -57,14 +57,22 @@ export function frontMarks(
   }
   const side = freeSides(frame, profile, position_m);
   if (width_m !== null) {
-    const [a, b] = [frame.y(position_m - width_m), frame.y(position_m + width_m)];
+    const { top, bottom } = frame.bed;
+    const within = (at: number) => Math.min(bottom, Math.max(top, at));
+    const ends = [position_m - width_m, position_m + width_m].map((at) => within(frame.y(at)));
+    const [a, b] = [Math.min(...ends), Math.max(...ends)];
     const atRight = side.below === 'end';
     const x = atRight ? right - 6 : left + 6;
     group.append(
-      s('path', { class: 'width', d: `M${x - 4},${a} h8 M${x},${a} V${b} M${x - 4},${b} h8` }),
+      s('path', {
+        class: 'width',
+        // What reaches out of the bed ends there without a stroke across.
+        d: `${a > top ? `M${x - 4},${a} h8 ` : ''}M${x},${a} V${b}${b < bottom ? ` M${x - 4},${b} h8` : ''}`,
+      }),
     );
     const words = `${fixed(width_m, 2)} m`;
-    group.append(label(atRight ? x - 9 : x + 9, y + 17, words, side.below));
+    const low = y + 17 > bottom - 2 ? y - 7 : y + 17;
+    group.append(label(atRight ? x - 9 : x + 9, low, words, side.below));
   }
   const x = side.above === 'start' ? left + 4 : right - 4;
   group.append(label(x, y - 7, `front ${fixed(position_m, 2)} m`, side.above));

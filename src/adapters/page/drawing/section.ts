@@ -83,7 +83,15 @@ export function sensorMark(x: number, y: number, reading: Reading, size: number)
       d: `M${x - d},${y - d} L${x + d},${y + d} M${x - d},${y + d} L${x + d},${y - d}`,
     });
   }
-  if (reading.value_degC === null) return s('circle', { class: 'missing', cx: x, cy: y, r: size });
+  if (reading.value_degC === null) {
+    // Larger than a reading, on a ground of its own: it has to be seen among charged rock.
+    return s(
+      'g',
+      {},
+      s('circle', { class: 'ground', cx: x, cy: y, r: size * 2.9 }),
+      s('circle', { class: 'missing', cx: x, cy: y, r: size * 1.9 }),
+    );
+  }
   return s('circle', { class: 'used', cx: x, cy: y, r: size });
 }
 
@@ -92,11 +100,13 @@ export function tubeFronts(
   frame: Frame,
   rings: readonly Ring[],
   state: Pick<StoreState, 'strings'> | null,
+  length_m: number,
 ): SVGElement {
   const group = s('g', { class: 'tube-fronts' });
   for (const ring of rings) {
     const position = state?.strings.find((string) => string.id === ring.id)?.position_m ?? null;
-    if (position === null) continue;
+    // Beyond an end the tube is all charged or all spent: there is no step to be drawn.
+    if (position === null || position < 0 || position > length_m) continue;
     const y = frame.y(position);
     group.append(s('path', { d: `M${frame.r(ring.inner_m)},${y} H${frame.r(ring.outer_m)}` }));
   }

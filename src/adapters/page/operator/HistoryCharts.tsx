@@ -94,8 +94,10 @@ export function HistoryCharts({ entry }: { entry: UnitEntry }) {
       <p class="when" data-field="cursor">
         {told}
       </p>
-      <p class="fault" role="status">
-        {answer?.history.rows.length === 0 ? 'Nothing is stored for this span yet.' : fault}
+      <p class={fault === null ? 'when' : 'fault'} role="status">
+        {to === 0 || answer?.history.rows.length === 0
+          ? 'Nothing is stored for this span yet.'
+          : fault}
       </p>
     </section>
   );

@@ -19,7 +19,7 @@ export function Legend() {
         <path class="key-rejected" d="M7,3 l8,8 m0,-8 l-8,8" />
       </Item>
       <Item text="missing">
-        <circle class="key-missing" cx="11" cy="7" r="3" />
+        <circle class="key-missing" cx="11" cy="7" r="4.2" />
       </Item>
       <Item text="front, 16–84 % width">
         <path class="key-front" d="M1,7 H21" />

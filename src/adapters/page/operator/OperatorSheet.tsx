@@ -31,7 +31,7 @@ export function OperatorSheet() {
 }
 
 /** What stands above the beds and below them, in sizes of type and in pixels. */
-const AROUND_REM = 27;
+const AROUND_REM = 26;
 const AROUND_PX = 70;
 
 function Stores({ entry }: { entry: UnitEntry }) {

@@ -122,6 +122,7 @@ function Age({ entry }: { entry: UnitEntry }) {
   return (
     <td class="number" data-cell="age">
       {age_s === null ? DASH : ageText(age_s)}
+      {age_s !== null && <span class="narrow"> old</span>}
     </td>
   );
 }

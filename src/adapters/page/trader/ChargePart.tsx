@@ -188,7 +188,7 @@ function HeadroomCells({ answer }: { answer: HeadroomAnswer }) {
         <strong data-field="headroom">{fixed(energy_MWh_el.p90, 2)}</strong>
       </td>
       <td class="whole">{hoursText(hours.p90)}</td>
-      <td>
+      <td class="whole">
         {fixed(energy_MWh_el.p50, 2)} · {fixed(energy_MWh_el.p10, 2)}
       </td>
       <td>

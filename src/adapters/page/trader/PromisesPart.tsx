@@ -1,17 +1,24 @@
 import { useState } from 'preact/hooks';
-import { fixed, percent, power } from '../lib/format.js';
+import { fixed, hoursText, percent, power } from '../lib/format.js';
 import { api, model } from '../lib/page.js';
 import { hrefOf, route } from '../lib/route.js';
 import { useAnswer } from '../lib/useAnswer.js';
 import { Choices } from '../parts/Choices.js';
+import { Unit } from '../parts/Unit.js';
 import { KeptTable } from './KeptTable.js';
 import { sourceNow } from './moved.js';
 import { DeliveredPicture, SharePicture } from './PromisePictures.js';
 import { Scrolled } from './Scrolled.js';
 import { csvOf, Take, tabsOf } from './Take.js';
 import { typedTime, zoneWords } from './times.js';
-import { type KeptShare, type KeptTables, type OfferReport, zoneOf } from './wire.js';
-import { causeWords, offerLine, UNTESTED_WORDS } from './words.js';
+import {
+  type KeptShare,
+  type KeptTables,
+  type OfferHead,
+  type OfferReport,
+  zoneOf,
+} from './wire.js';
+import { causeWords, UNTESTED_WORDS } from './words.js';
 
 const SPANS = [
   { value: '7', label: '7 days' },
@@ -67,14 +74,16 @@ export function PromisesPart() {
       </p>
       {answer !== null && (
         <>
-          <Kept report={answer.report} zone={zone} />
+          {answer.report.tables > 0 && <Kept report={answer.report} zone={zone} />}
           <History history={answer.history} zone={zone} />
-          <p class="help">Times are those of {zoneWords(zone)}.</p>
-          <Take
-            name={`${unit}-promises.csv`}
-            csv={() => csvOf(reportRows(answer.report))}
-            text={() => tabsOf(reportRows(answer.report))}
-          />
+          {answer.report.tables > 0 && <p class="help">Times are those of {zoneWords(zone)}.</p>}
+          {answer.report.tested.length > 0 && (
+            <Take
+              name={`${unit}-promises.csv`}
+              csv={() => csvOf(reportRows(answer.report))}
+              text={() => tabsOf(reportRows(answer.report))}
+            />
+          )}
         </>
       )}
     </>
@@ -105,29 +114,36 @@ function Kept({ report, zone }: { report: OfferReport; zone: string | null }) {
     <>
       <div class="promise-view">
         <div class="closely">
-          <p class="large">
-            <strong data-field="firm-kept">
-              {report.p90.of === 0 ? '–' : `${report.p90.kept} of ${report.p90.of}`}
-            </strong>
-            <span>discharges gave at least the firm figure (p90, nine in ten)</span>
-          </p>
+          {report.p90.of === 0 ? (
+            <p class="lead">
+              No discharge of that time has put a promise to the test yet, so that nothing can be
+              said of how they were kept.
+            </p>
+          ) : (
+            <p class="large">
+              <strong data-field="firm-kept">{`${report.p90.kept} of ${report.p90.of}`}</strong>
+              <span>discharges gave at least the firm figure (p90, nine in ten)</span>
+            </p>
+          )}
           <dl class="facts">
-            <dt>Firm (p90)</dt>
-            <dd class={firm.care ? 'care' : undefined} data-field="firm-words">
-              {firm.care && '▲ '}
-              {firm.words}
-            </dd>
-            <dt>Even (p50)</dt>
-            <dd class={even.care ? 'care' : undefined}>
-              {even.care && '▲ '}
-              {even.words}
-            </dd>
-            <dt>Hopeful (p10)</dt>
-            <dd>
-              {tested.length === 0
-                ? 'not put to the test yet'
-                : `reached ${hopeful} of ${tested.length} times; meant ${fixed(tested.length / 10, 1)}`}
-            </dd>
+            {tested.length > 0 && (
+              <>
+                <dt>Firm (p90)</dt>
+                <dd class={firm.care ? 'care' : undefined} data-field="firm-words">
+                  {firm.care && '▲ '}
+                  {firm.words}
+                </dd>
+                <dt>Even (p50)</dt>
+                <dd class={even.care ? 'care' : undefined}>
+                  {even.care && '▲ '}
+                  {even.words}
+                </dd>
+                <dt>Hopeful (p10)</dt>
+                <dd>
+                  {`reached ${hopeful} of ${tested.length} times; meant ${fixed(tested.length / 10, 1)}`}
+                </dd>
+              </>
+            )}
             <dt>Looked at</dt>
             <dd>
               {report.tables} kept {report.tables === 1 ? 'table' : 'tables'}
@@ -261,8 +277,9 @@ function History({ history, zone }: { history: KeptTables; zone: string | null }
                   {offers
                     .filter((offer) => offer.start === start)
                     .slice(0, 3)
-                    .map(offerLine)
-                    .join('; ')}
+                    .map((offer) => (
+                      <OfferLine key={offer.power_MW_el} offer={offer} />
+                    ))}
                 </td>
               </tr>
             );
@@ -270,6 +287,18 @@ function History({ history, zone }: { history: KeptTables; zone: string | null }
         </tbody>
       </table>
     </Scrolled>
+  );
+}
+
+/** An offer in one line, for a table of the past. */
+function OfferLine({ offer }: { offer: OfferHead }) {
+  const { power_MW_el, hours, energy_MWh_el, refused } = offer;
+  if (refused !== null) return <span class="line">{power(power_MW_el)} MW: refused</span>;
+  return (
+    <span class="line">
+      {power(power_MW_el)} MW: {fixed(energy_MWh_el.p90, 2)}
+      <Unit name="MWh_el" />, {hoursText(hours.p90)}
+    </span>
   );
 }
 

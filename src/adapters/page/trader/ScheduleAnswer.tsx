@@ -1,7 +1,7 @@
 import { fixed, hoursText, MODE_WORDS, percent, power } from '../lib/format.js';
 import { Unit } from '../parts/Unit.js';
 import { Scrolled } from './Scrolled.js';
-import { shortTime } from './times.js';
+import { shortTime, spanWords } from './times.js';
 import type { CheckedRun, ScheduleCheck, Short } from './wire.js';
 import {
   causeWords,
@@ -48,7 +48,7 @@ export function ScheduleFacts({ check, zone }: { check: ScheduleCheck; zone: str
         )}
         {check.unmet.map((one) => (
           <Fact key={`${one.from}${one.cause}`} name="Not possible" care>
-            {clock(one.from)} to {clock(one.to)}: {causeWords(one.cause)},{' '}
+            {spanWords(one.from, one.to, clock)}: {causeWords(one.cause)},{' '}
             {fixed(one.missing_MW_el, 2)} MW and {fixed(one.MWh_el, 2)}
             <Unit name="MWh_el" /> less
           </Fact>

@@ -81,7 +81,7 @@ function Drawing({
         {...{ frame, x, y }}
         across={across.map((value) => [value, `${value}`])}
         up={up.map((value) => [value, `${value}`])}
-        upName="MW"
+        upName="MW el"
         acrossName="hours"
       />
       {energies.map((energy) => (
@@ -121,7 +121,7 @@ function Drawing({
       {one !== null && (
         <text class="on-energy" x={x(0) + 10} y={y(one.power_MW_el) + 22}>
           {fixed(one.firm_MWh_el, 2)} MWh
-          <tspan dy="4" class="index">
+          <tspan dx="0.5" dy="4" class="index">
             el
           </tspan>
         </text>
@@ -157,6 +157,9 @@ function Equal({
       <path d={pathOf(points)} />
       <text x={x(shortest)} y={frame.top - 8} text-anchor="middle">
         {energy} MWh
+        <tspan dx="0.5" dy="3" class="index">
+          el
+        </tspan>
       </text>
     </g>
   );

@@ -42,6 +42,13 @@ export function shortTime(zone: string | null, time: string | number, beside: nu
   return date === wallOf(zone, beside).date ? clock : `${day} ${clock}`;
 }
 
+/** From when to when; `07:00 for 20 s` where both are told alike. */
+export function spanWords(from: string, to: string, clock: (time: string) => string): string {
+  const [begins, ends] = [clock(from), clock(to)];
+  if (begins !== ends) return `${begins} to ${ends}`;
+  return `${begins} for ${Math.round((Date.parse(to) - Date.parse(from)) / 1000)} s`;
+}
+
 /** As it is typed into a schedule: `2026-01-31 18:00`. */
 export function typedTime(zone: string | null, time: string | number): string {
   const { date, clock } = wallOf(zone, time);

@@ -1,5 +1,6 @@
-import { END_WORDS, fixed, hoursText, LIMIT_WORDS, percent, power } from '../lib/format.js';
-import type { FirstMinutes, Limited, OfferHead } from './wire.js';
+import { END_WORDS, fixed, LIMIT_WORDS, percent, power } from '../lib/format.js';
+import { spanWords } from './times.js';
+import type { FirstMinutes, Limited } from './wire.js';
 
 /** Certainties as those who sell say them. */
 const CERTAINTY_WORDS: readonly [number, string, string][] = [
@@ -74,7 +75,7 @@ export function limitedWords(limited: readonly Limited[], clock: (time: string) 
   return limited
     .map(
       ({ cause, from, to, missing_MW_el }) =>
-        `${clock(from)} to ${clock(to)} ${causeWords(cause)}: ${power(missing_MW_el)} MW less`,
+        `${spanWords(from, to, clock)} ${causeWords(cause)}: ${power(missing_MW_el)} MW less`,
     )
     .join('; ');
 }
@@ -84,10 +85,4 @@ export function firstMinutesWords(first: FirstMinutes | undefined): string | nul
   const lasts = `for about ${Math.max(1, Math.ceil(first.minutes))} min`;
   const lacks = `up to ${fixed(first.lacking_MW, 2)} MW less than asked ${lasts}`;
   return `${lacks} at first, while gas that stood is pushed out (${chance(first.probability)})`;
-}
-
-/** An offer in one line, for a table of the past. */
-export function offerLine({ power_MW_el, hours, energy_MWh_el, refused }: OfferHead): string {
-  if (refused !== null) return `${power(power_MW_el)} MW: refused`;
-  return `${power(power_MW_el)} MW: ${fixed(energy_MWh_el.p90, 2)} MWh, ${hoursText(hours.p90)}`;
 }

@@ -4,6 +4,7 @@ import { clock } from '../../lib/format.js';
 import { model } from '../../lib/page.js';
 import { AlarmItem } from './AlarmItem.js';
 import { commandFault, type HidingAction } from './commands.js';
+import { EventsBelow } from './EventsBelow.js';
 import { HeldBack } from './HeldBack.js';
 import { HideDialog } from './HideDialog.js';
 import { useFocusKept } from './useFocusKept.js';
@@ -15,6 +16,7 @@ const STORM_TOLD_MS = 600_000;
 /** What stands, of all units: an alarm of a unit that is not on the screen must not be missed. */
 export function Alarms() {
   const root = useRef<HTMLElement>(null);
+  const list = useRef<HTMLUListElement>(null);
   const [hiding, setHiding] = useState<{ id: string; action: HidingAction } | null>(null);
   useFocusKept(root);
   const units = model.units.value;
@@ -34,7 +36,12 @@ export function Alarms() {
           : `${events.length} standing, ${open} to acknowledge`}
       </p>
       <Storm />
-      <ul class="events" tabIndex={events.length > 0 ? 0 : undefined} aria-label="Standing">
+      <ul
+        ref={list}
+        class="events"
+        tabIndex={events.length > 0 ? 0 : undefined}
+        aria-label="Standing"
+      >
         {events.map((event) => (
           <AlarmItem
             key={event.id}
@@ -45,6 +52,7 @@ export function Alarms() {
           />
         ))}
       </ul>
+      <EventsBelow list={list} />
       <HeldBack held={held} nameOf={nameOf} />
       <p class="fault" role="alert">
         {commandFault}

@@ -8,6 +8,8 @@ import { who } from './who.js';
 const SPANS_H = [0.25, 1, 4] as const;
 const FIRST_H = '1';
 
+const spanText = (span_h: number) => (Number.isInteger(span_h) ? `${span_h} h` : hoursText(span_h));
+
 const HEADS: Readonly<Record<HidingAction, string>> = {
   shelve: 'Shelve',
   out_of_service: 'Take out of service',
@@ -110,7 +112,7 @@ export function HideDialog({
                   aria-pressed={hours_h === span}
                   onClick={() => setHours(String(span))}
                 >
-                  {hoursText(span)}
+                  {spanText(span)}
                 </button>
               ))}
             </p>
