@@ -6,8 +6,10 @@
  *
  * Options: --out FOLDER (.screens), --url ADDRESS of a page that runs (else that plant), --hours 14
  * of plant time before the pictures, --only now,rock/playback, --sizes 1280x800, --scheme light or
- * dark alone, --stale (nothing is heard of the plant for an hour first), --readme (the few small ones
- * of README.md instead, into fixtures/screens). It shows the page that npm run build made.
+ * dark alone, --stale (nothing is heard of the plant for an hour first), --lost (the server falls silent
+ * before each picture), --plant healthy (one unit without trouble) or empty (one before its first
+ * scan), --readme (the few small ones of README.md instead, into fixtures/screens). It shows the page
+ * that npm run build made.
  */
 import { mkdirSync, writeFileSync } from 'node:fs';
 import { fileURLToPath } from 'node:url';
@@ -15,12 +17,13 @@ import { parseArgs } from 'node:util';
 import cliProgress from 'cli-progress';
 import type { Page } from 'playwright-core';
 import { openBrowser } from '../test/adapters/page/browser.js';
+import { freezingProxy } from '../test/adapters/page/freezingProxy.js';
 import { findProgram, PROGRAMS } from '../test/support/requirements.js';
 import { helpIfAsked } from './help.js';
 import { goTo, placesOf, settled, watchRequests } from './page/places.js';
 import { OPENED, prepare } from './page/prepare.js';
 import { PICTURES, smallPicture } from './page/readmePictures.js';
-import { troubledPlant } from './page/troubledPlant.js';
+import { PLANTS, simulatedPlant } from './page/simulatedPlant.js';
 
 helpIfAsked(import.meta.url);
 
@@ -33,6 +36,8 @@ const { values } = parseArgs({
     sizes: { type: 'string', default: '1920x1080,1280x800,390x844' },
     scheme: { type: 'string', default: 'light,dark' },
     stale: { type: 'boolean', default: false },
+    lost: { type: 'boolean', default: false },
+    plant: { type: 'string', default: 'troubled' },
     readme: { type: 'boolean', default: false },
   },
 });
@@ -45,6 +50,8 @@ function refuse(words: string): never {
 const hours = Number(values.hours);
 if (!(hours > 0)) refuse(`--hours must be a number above 0, got "${values.hours}"`);
 if (values.stale && values.url !== undefined) refuse('--stale goes with a plant of its own only');
+const kind = PLANTS.find((name) => name === values.plant);
+if (kind === undefined) refuse(`--plant is ${PLANTS.join(', ')}; got "${values.plant}"`);
 const sizes = values.sizes.split(',').map((text) => {
   const [, width, height] = /^(\d+)x(\d+)$/.exec(text) ?? refuse(`--sizes: "${text}" is no size`);
   return { text, width: Number(width), height: Number(height) };
@@ -79,11 +86,13 @@ try {
   const open = watchRequests(page);
   page.on('console', (said) => process.stderr.write(`console: ${said.text()}\n`));
   page.on('pageerror', (error) => process.stderr.write(`error: ${error.message}\n`));
-  await page.goto(values.url ?? plant!.url);
+  const url = values.url ?? plant!.url;
+  const between = values.lost ? await freezingProxy(Number(new URL(url).port)) : null;
+  await page.goto(between?.url ?? url);
   await page.waitForSelector('#freshness:not([data-trust="connecting"])');
   mkdirSync(out, { recursive: true });
   if (values.readme) await readmePictures(page, open);
-  else await allPictures(page, open);
+  else await allPictures(page, open, between);
 } finally {
   await browser.close();
   await plant?.stop();
@@ -92,22 +101,34 @@ process.exit();
 
 async function fastForward() {
   shown?.start(hours, 0, { what: 'hours of the plant' });
-  const running = await troubledPlant(hours, (done) => shown?.update(Math.round(done)));
+  const running = await simulatedPlant(kind!, hours, (done) => shown?.update(Math.round(done)));
   shown?.stop();
   return running;
 }
 
-async function allPictures(page: Page, open: () => number): Promise<void> {
+async function allPictures(
+  page: Page,
+  open: () => number,
+  between: Awaited<ReturnType<typeof freezingProxy>> | null,
+): Promise<void> {
   const places = (await placesOf(page, open)).filter(({ path }) => only?.includes(path) ?? true);
   shown?.start(places.length, 0, { what: 'sheets and parts' });
   for (const { path, name } of places) {
     await goTo(page, path);
     await prepare(page, path);
+    if (between !== null) {
+      between.freeze();
+      await page.waitForSelector('#freshness[data-trust="lost"]');
+    }
     await inAllLooks(page, open, name);
-    const more = OPENED[path];
-    if (more !== undefined && (await more.open(page))) {
-      await inAllLooks(page, open, more.name, false);
+    for (const more of between === null ? (OPENED[path] ?? []) : []) {
+      if (!(await more.open(page))) continue;
+      await inAllLooks(page, open, more.name, more.whole);
       await page.keyboard.press('Escape');
+    }
+    if (between !== null) {
+      between.thaw();
+      await page.waitForSelector('#freshness:not([data-trust="lost"])');
     }
     shown?.increment();
   }

@@ -17,18 +17,42 @@ export async function prepare(page: Page, path: string): Promise<void> {
   await DONE[path]?.(page);
 }
 
-/** Further things to look at on a part: a dialog that is opened for it, by a name of its own. */
-export const OPENED: Readonly<
-  Record<string, { name: string; open(page: Page): Promise<boolean> }>
-> = {
-  now: {
-    name: 'now-shelve',
-    async open(page) {
-      const button = page.locator('#alarms [data-action="shelve"]').first();
-      if ((await button.count()) === 0) return false;
-      await button.click();
-      await page.waitForSelector('dialog[open]');
-      return true;
+interface Opened {
+  readonly name: string;
+  /** The whole sheet, not only what is in view. */
+  readonly whole: boolean;
+  /** False where there is nothing to be opened. */
+  open(page: Page): Promise<boolean>;
+}
+
+/** Further things to look at on a part, by a name of their own. */
+export const OPENED: Readonly<Record<string, readonly Opened[]>> = {
+  now: [
+    {
+      ...{ name: 'now-shelve', whole: false },
+      async open(page) {
+        const button = page.locator('#alarms [data-action="shelve"]').first();
+        if ((await button.count()) === 0) return false;
+        await button.click();
+        await page.waitForSelector('dialog[open]');
+        return true;
+      },
     },
-  },
+    {
+      ...{ name: 'now-acknowledged', whole: true },
+      async open(page) {
+        const buttons = page.locator('#alarms [data-action="acknowledge"]');
+        if ((await buttons.count()) === 0) return false;
+        await page.fill('#who', 'night shift');
+        for (let left = await buttons.count(); left > 0; left--) {
+          await buttons.first().click();
+          await page.waitForFunction(
+            (fewer) => document.querySelectorAll('[data-action="acknowledge"]').length < fewer,
+            left,
+          );
+        }
+        return true;
+      },
+    },
+  ],
 };

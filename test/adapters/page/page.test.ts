@@ -1,5 +1,6 @@
-import type { Browser } from 'playwright-core';
+import type { Browser, Page } from 'playwright-core';
 import { afterAll, afterEach, beforeAll, beforeEach, describe, expect, it } from 'vitest';
+import { axeFinds } from '../../chain/pageChain.js';
 import { requireProgram } from '../../support/requirements.js';
 import { waitFor } from '../../support/wait.js';
 import { COLD, HOT, unitOf } from '../http/scriptedDefinitions.js';
@@ -10,6 +11,15 @@ import { freezingProxy } from './freezingProxy.js';
 /** Questions about the time ahead are asked at most every two seconds. */
 const SLOWLY = { timeout: 10_000 };
 const chromium = requireProgram('chromium');
+
+/** What axe-core finds: everything in light, and of contrast in dark. */
+async function finds(page: Page): Promise<string[]> {
+  const light = await axeFinds(page);
+  await page.emulateMedia({ colorScheme: 'dark' });
+  const dark = await axeFinds(page, ['color-contrast']);
+  await page.emulateMedia({ colorScheme: 'light' });
+  return [...light, ...dark.map((one) => `dark: ${one}`)];
+}
 
 describe.skipIf(!chromium)('the page, in a real browser', { timeout: 30_000 }, () => {
   let browser: Browser;
@@ -406,7 +416,7 @@ describe.skipIf(!chromium)('the page, in a real browser', { timeout: 30_000 }, (
     expect(await cell('energy')).toBe('9.5');
     expect(await cell('power')).toBe('−1.85');
     expect(await cell('well')).toBe('Alarm: outlet near limit, hot');
-    expect(await cell('age')).toMatch(/^\d+ s$/);
+    expect(await cell('age')).toMatch(/^\d+ s old$/);
     expect(await page.locator('[data-unit-row="north"] [data-cell="well"]').textContent()).toBe(
       'All as it should be.',
     );
@@ -508,8 +518,94 @@ describe.skipIf(!chromium)('the page, in a real browser', { timeout: 30_000 }, (
     await page.locator('[data-chart="charge"] .u-over').hover({ position: { x: 150, y: 20 } });
     await expect
       .poll(() => field(page, 'cursor').textContent())
-      .toMatch(/^2026-01-31 0\d:\d\d:\d\d · \d+\.\d % charged( · p50 \d h \d\d min)?$/);
+      .toMatch(/^2026-01-31 0\d:\d\d:\d\d · \d+\.\d % charged( · p50 (\d h )?\d+ min)?$/);
   });
+
+  it('says how many stand below the seen part of the list, and goes there', async () => {
+    const { page } = await open();
+    for (const kind of [
+      'valve_leaks',
+      'front_spread',
+      'gas_lost',
+      'stores_mismatched',
+      'bed_settled',
+    ])
+      plant.raise({ kind, subject: 'hot' } as Parameters<typeof plant.raise>[0]);
+    await page.waitForSelector('.events li:nth-child(5)');
+    const below = page.locator('.events-below');
+    await expect.poll(() => below.textContent(), SLOWLY).toMatch(/^▼ [34] more below$/);
+    while ((await below.count()) > 0) {
+      const before = await page.locator('.events').evaluate((list) => list.scrollTop);
+      await below.click();
+      await expect
+        .poll(() => page.locator('.events').evaluate((list) => list.scrollTop), SLOWLY)
+        .toBeGreaterThan(before);
+      // The word goes once the end is seen: drawn in a frame of its own.
+      await page.evaluate(() => new Promise((drawn) => setTimeout(drawn, 50)));
+    }
+    const seen = await page.locator('.events').evaluate((list) => {
+      const last = list.lastElementChild!.getBoundingClientRect();
+      return last.bottom - list.getBoundingClientRect().bottom;
+    });
+    expect(seen).toBeLessThan(7);
+  });
+
+  it('keeps the age in the first row of the head, and alone in view on a phone', async () => {
+    const { page } = await open();
+    plant.raise({ kind: 'outlet_near_limit', subject: 'hot', class: 'alarm', priority: 'high' });
+    await page.waitForSelector('#open-count');
+    const box = async (selector: string) => (await page.locator(selector).boundingBox())!;
+    expect((await box('.top')).height).toBeLessThan(60);
+    expect(await page.locator('#units button').count()).toBe(2);
+    await page.setViewportSize({ width: 390, height: 844 });
+    await page.evaluate(() => window.scrollTo(0, 900));
+    await expect.poll(async () => (await box('#sheets')).y, SLOWLY).toBeLessThan(-100);
+    const line = await box('.watchline');
+    expect(line.y).toBe(0);
+    expect(line.height).toBeLessThan(50);
+    expect((await box('#freshness')).y).toBeGreaterThanOrEqual(0);
+  });
+
+  it('draws nothing of a front beyond the ends of its bed', async () => {
+    plant.moment = { charged: 0.99, mode: 'stand' };
+    plant.step();
+    const { page } = await open();
+    await page.waitForSelector('.front .width', { state: 'attached' });
+    const ends = await page.locator('[data-store="hot"] .bed').evaluate((svg) => {
+      const box = (selector: string) => svg.querySelector<SVGGraphicsElement>(selector)!.getBBox();
+      const [wall, width] = [box('.wall'), box('.front .width')];
+      const fronts = [...svg.querySelectorAll<SVGGraphicsElement>('.tube-fronts path')];
+      const lowest = Math.max(...fronts.map((one) => one.getBBox().y));
+      return { bed: wall.y + wall.height, width: width.y + width.height, lowest };
+    });
+    expect(ends.width).toBeLessThanOrEqual(ends.bed);
+    expect(ends.lowest).toBeLessThanOrEqual(ends.bed);
+  });
+
+  it('has nothing that axe-core finds with a dialog open, stale or without connection', async () => {
+    plant.raise({ kind: 'outlet_near_limit', subject: 'hot', class: 'alarm', priority: 'high' });
+    plant.raise({ kind: 'valve_leaks', subject: 'cold' });
+    const { page } = await open();
+    await page.waitForSelector('.estimate');
+    await page.locator('.events [data-action="shelve"]').first().click();
+    await page.waitForSelector('dialog[open]');
+    expect(await finds(page)).toEqual([]);
+    await page.keyboard.press('Escape');
+    await page.waitForSelector('dialog', { state: 'detached' });
+    plant.stale = true;
+    plant.age_s = 840;
+    plant.step();
+    await page.waitForSelector('#freshness[data-trust="stale"]');
+    expect(await finds(page)).toEqual([]);
+    await served.server.stop();
+    await page.waitForSelector('#freshness[data-trust="lost"]');
+    expect(await axeFinds(page)).toEqual([]);
+    await page.evaluate(() => {
+      location.hash = '#site';
+    });
+    await page.waitForSelector('.units');
+    expect(await axeFinds(page)).toEqual([]);
+  }, 90_000);
 
   it('carries the caution', async () => {
     const { page } = await open();

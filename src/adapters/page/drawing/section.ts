@@ -88,7 +88,7 @@ export function sensorMark(x: number, y: number, reading: Reading, size: number)
     return s(
       'g',
       {},
-      s('circle', { class: 'ground', cx: x, cy: y, r: size * 2.9 }),
+      s('circle', { class: 'ground', cx: x, cy: y, r: size * 3.3 }),
       s('circle', { class: 'missing', cx: x, cy: y, r: size * 1.9 }),
     );
   }

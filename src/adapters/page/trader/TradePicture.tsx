@@ -119,7 +119,7 @@ function Drawing({
         </g>
       ))}
       {one !== null && (
-        <text class="on-energy" x={x(0) + 10} y={y(one.power_MW_el) + 22}>
+        <text {...energyPlace(x(0), x(one.firm_h), y(one.power_MW_el), y(0))}>
           {fixed(one.firm_MWh_el, 2)} MWh
           <tspan dx="0.5" dy="4" class="index">
             el
@@ -128,6 +128,16 @@ function Drawing({
       )}
     </svg>
   );
+}
+
+/** The figure needs so much of the area that it stands on [px]. */
+const FIGURE_PX = 110;
+
+/** In the area of an energy, or right beside its foot where it is too narrow for that. */
+function energyPlace(left: number, right: number, top: number, bottom: number) {
+  return right - left >= FIGURE_PX
+    ? { class: 'on-energy', x: left + 10, y: top + 22 }
+    : { class: 'figure', x: right + 6, y: bottom - 8 };
 }
 
 /** Line of equal energy, with its figure where it leaves the frame. */

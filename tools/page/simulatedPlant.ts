@@ -5,16 +5,36 @@ const CUT = 'hot_axis_03';
 const LOW = 'cold_rim_06';
 const LIVE_SPEED = 5;
 
+/** Plants to look at. */
+export const PLANTS = ['troubled', 'healthy', 'empty'] as const;
+
 /**
- * Two units with so many hours behind them and what a plant has of troubles: a thermocouple that is
- * cut off and acknowledged, one that reads 60 K low, an offer table that was kept.
+ * A plant that runs on by itself: two units in trouble, one without any, or one before its first scan.
  *
+ * @param hours plant time that goes by first; none for `empty`
  * @param progress plant time that has gone by [h]
  */
-export async function troubledPlant(
+export async function simulatedPlant(
+  kind: (typeof PLANTS)[number],
   hours: number,
   progress: (done: number) => void,
 ): Promise<DrivenPlant> {
+  if (kind === 'troubled') return troubled(hours, progress);
+  const plant = await DrivenPlant.start({
+    ...{ hours: kind === 'empty' ? 0 : hours, cells: 40, incidents: false },
+    units: ['Vellmoor, unit 1'],
+  });
+  if (kind === 'empty') return plant;
+  await plant.run(hours, progress);
+  plant.live(LIVE_SPEED);
+  return plant;
+}
+
+/**
+ * Two units with so many hours behind them and what a plant has of troubles: a thermocouple that is
+ * cut off and acknowledged, one that reads 60 K low, an offer table that was kept.
+ */
+async function troubled(hours: number, progress: (done: number) => void): Promise<DrivenPlant> {
   const plant = await DrivenPlant.start({
     ...{ hours, cells: 40, hours_at_MW_el: [1.8, 1.2] },
     units: ['Vellmoor, unit 1', 'Vellmoor, unit 2'],
