@@ -13,7 +13,7 @@ RUN npm run build && npm prune --omit=dev --no-audit --no-fund
 
 FROM node:20-bookworm-slim
 ENV NODE_ENV=production \
-    ROCKHOUR_HEALTH_URL=http://127.0.0.1:8080/api/health
+    ROCKHOUR_HEALTH_URL=http://127.0.0.1:8080/api/live
 # A fixed number, so that a volume's owner can be set from outside.
 RUN groupadd --gid 10001 rockhour \
  && useradd --uid 10001 --gid rockhour --home-dir /data --no-create-home --shell /usr/sbin/nologin rockhour \
@@ -33,6 +33,6 @@ STOPSIGNAL SIGTERM
 # Healthy is a daemon that answers. That a database or a broker outside is down is in its answer,
 # for people: to restart rockhour would not bring it back.
 HEALTHCHECK --interval=30s --timeout=5s --start-period=60s --retries=3 \
-  CMD ["node", "-e", "fetch(process.env.ROCKHOUR_HEALTH_URL).then((answer) => answer.json()).then((health) => process.exit(Array.isArray(health.parts) ? 0 : 1), () => process.exit(1))"]
+  CMD ["node", "-e", "fetch(process.env.ROCKHOUR_HEALTH_URL).then((answer) => answer.json()).then((answer) => process.exit(answer.alive === true ? 0 : 1), () => process.exit(1))"]
 ENTRYPOINT ["rockhour"]
 CMD ["run", "--config", "/config/plant.yaml"]

@@ -1,4 +1,6 @@
 import { join } from 'node:path';
+import { Access } from './access/access.js';
+import { TokensWatch } from './access/tokensWatch.js';
 import { FolderLock } from './adapters/history/folderLock.js';
 import { History } from './adapters/history/history.js';
 import { Journal } from './adapters/history/journal.js';
@@ -76,6 +78,8 @@ class RockhourDaemon implements Daemon {
   private readonly log: Log;
   private readonly clock: DaemonClock;
   private readonly counters = new Counters();
+  /** Who may come in, to page, API and its own broker alike. */
+  private readonly access: Access;
   private readonly journal: Journal;
   private readonly history: History;
   private readonly questions: Questions;
@@ -103,6 +107,7 @@ class RockhourDaemon implements Daemon {
     const notices = new Notices(log);
     const { counters } = this;
     this.log = log;
+    this.access = new Access(site.http.tokens);
     this.clock = clock;
     const { folder } = site.store;
     const journal = new Journal(join(folder, 'journal.sqlite'));
@@ -223,6 +228,7 @@ class RockhourDaemon implements Daemon {
       () => lock.start(),
       () => lock.stop(),
     );
+    await this.startTokens();
     await this.begin(
       () => mqtt.startBroker(),
       () => mqtt.stopBroker(),
@@ -268,6 +274,22 @@ class RockhourDaemon implements Daemon {
     return { url, broker: mqtt.name, folder };
   }
 
+  /** A token taken out of its file is refused while the daemon runs. */
+  private async startTokens(): Promise<void> {
+    const { tokens_file: file = null, tokens_inline: inline = [] } = this.site.http;
+    if (file === null) return;
+    const { access, log } = this;
+    const watch = new TokensWatch({
+      ...{ access, file, inline },
+      info: (text) => log.info(text),
+      error: (text) => log.error(text),
+    });
+    await this.begin(
+      () => watch.start(),
+      () => watch.stop(),
+    );
+  }
+
   private async begin(
     start: () => void | Promise<void>,
     end: () => void | Promise<void>,
@@ -285,6 +307,7 @@ class RockhourDaemon implements Daemon {
     const server = createHttpServer(this.service, this.site.http, {
       log: this.log,
       pageFolder: pageFolder(),
+      access: this.access,
     });
     this.ending.push(() => server.stop());
     return (await server.start()).url;

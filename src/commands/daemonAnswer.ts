@@ -6,6 +6,12 @@ const PATIENCE_MS = 30_000;
 /** Refusals that say nothing of the question: who may ask, too slowly, too often. */
 const NOT_THE_QUESTION: ReadonlySet<number> = new Set([401, 403, 407, 408, 429]);
 
+/** The token of whoever asks: from the environment, for a command line is seen by everybody. */
+function tokenHeader(): { authorization?: string } {
+  const token = process.env.ROCKHOUR_TOKEN;
+  return token === undefined || token === '' ? {} : { authorization: `Bearer ${token}` };
+}
+
 /** The message of rockhour's own error body; null where another program wrote the body. */
 function ownWords(body: string): string | null {
   try {
@@ -47,6 +53,7 @@ export async function askDaemon(base: string, path: string, body?: object): Prom
       ...(body === undefined ? {} : { method: 'POST', body: JSON.stringify(body) }),
       headers: {
         accept: 'application/json',
+        ...tokenHeader(),
         ...(body === undefined ? {} : { 'content-type': 'application/json' }),
       },
       signal: AbortSignal.timeout(PATIENCE_MS),

@@ -7,12 +7,17 @@ import fastifyStatic from '@fastify/static';
 import swagger from '@fastify/swagger';
 import fastify, { type FastifyBaseLogger, LogController } from 'fastify';
 import { validatorCompiler, type ZodTypeProvider } from 'fastify-type-provider-zod';
+import { Access } from '../../access/access.js';
+import { LoginFailures } from '../../access/failures.js';
+import { addGuard, type Entrance, type Guard } from './auth.js';
 import { errorHandler } from './error-answer.js';
 import { HttpFault } from './faults.js';
 import { JsonWriter } from './json.js';
+import { answerClientError, type Servers } from './listening.js';
 import { transformSchemas } from './openapi.js';
 import { alarmRoutes } from './routes/alarms.js';
 import { historyRoutes } from './routes/history.js';
+import { loginRoutes } from './routes/login.js';
 import { offerRoutes } from './routes/offers.js';
 import { planRoutes } from './routes/plan.js';
 import { profileRoutes } from './routes/profiles.js';
@@ -32,6 +37,12 @@ export interface HttpOptions {
   /** Folder of the built page. */
   readonly pageFolder: string;
   readonly tuning?: Partial<HttpTuning>;
+  /** Who may come in; without it everybody on this machine. */
+  readonly access?: Access;
+  readonly login_by_proxy?: boolean;
+  /** Makes the servers that listen, with TLS where that is on. */
+  readonly servers?: Servers;
+  readonly isSecure?: boolean;
 }
 
 /** `rockhour/`, `/rockhour/` -> `/rockhour`; `` and `/` -> ``. */
@@ -41,11 +52,11 @@ export function normalPrefix(prefix: string): string {
 }
 
 /**
- * The page may load nothing but its own files, from its own place, and may not be framed. HSTS,
- * COOP and Origin-Agent-Cluster are left out: over plain HTTP, usual inside a plant's network,
- * browsers ignore them with a console message; whoever adds TLS in front adds HSTS there.
+ * The page may load nothing but its own files, from its own place, and may not be framed. HSTS is
+ * sent where rockhour itself speaks TLS. COOP and Origin-Agent-Cluster are left out: over plain HTTP,
+ * usual inside a plant's network, browsers ignore them with a console message, as they do HSTS.
  */
-const SECURITY_HEADERS = {
+const securityHeaders = (isSecure: boolean) => ({
   contentSecurityPolicy: {
     useDefaults: false,
     directives: {
@@ -59,15 +70,20 @@ const SECURITY_HEADERS = {
       frameAncestors: ["'none'"],
     },
   },
-  strictTransportSecurity: false,
+  // Half a year; names below this host's are not rockhour's to speak for.
+  strictTransportSecurity: isSecure && { maxAge: 15_768_000, includeSubDomains: false },
   crossOriginOpenerPolicy: false,
   originAgentCluster: false,
   referrerPolicy: { policy: 'no-referrer' as const },
-};
+});
 
-async function addPlugins(app: HttpApp, prefix: string, context: RouteContext): Promise<void> {
-  await app.register(helmet, SECURITY_HEADERS);
+async function addPlugins(app: HttpApp, prefix: string, context: RouteContext): Promise<Guard> {
+  const { entrance } = context;
+  await app.register(helmet, securityHeaders(entrance.isSecure));
+  // Before the rates, which are counted by token, and before every route.
+  const guard = addGuard(app, entrance);
   await app.register(rateLimit, {
+    keyGenerator: ({ holder, ip }) => (holder === null ? ip : `token ${holder.name}`),
     max: context.tuning.questions_per_min,
     timeWindow: 60_000,
     errorResponseBuilder: (_request, { max, ttl }) =>
@@ -96,9 +112,11 @@ async function addPlugins(app: HttpApp, prefix: string, context: RouteContext): 
     },
     transform: transformSchemas,
   });
+  return guard;
 }
 
 async function addPage(app: HttpApp, prefix: string, folder: string): Promise<void> {
+  // The page has no figures in itself: it asks for them, and logs in for that.
   const hide = { schema: { hide: true } };
   if (prefix !== '') {
     app.get(prefix, hide, async (_request, reply) => reply.redirect(`${prefix}/`, 308));
@@ -135,13 +153,23 @@ export async function createHttpApp(
   const tuning = { ...DEFAULT_TUNING, ...options.tuning };
   const json = new JsonWriter();
   const stream = new LiveStream(service, json, tuning);
-  const context: RouteContext = { service, stream, json, tuning };
+  const entrance: Entrance = {
+    access: options.access ?? new Access(),
+    failures: new LoginFailures(tuning.wrong_tokens_per_min),
+    login_by_proxy: options.login_by_proxy ?? false,
+    prefix,
+    isSecure: options.isSecure ?? false,
+  };
+  const context: RouteContext = { service, stream, json, tuning, entrance };
+  const { servers } = options;
 
   const app: HttpApp = fastify({
     loggerInstance: options.log,
     logController: new LogController({ disableRequestLogging: true }),
     bodyLimit: 16 * 1024,
     forceCloseConnections: true,
+    clientErrorHandler: answerClientError,
+    ...(servers === undefined ? {} : { serverFactory: servers.make }),
   }).withTypeProvider<ZodTypeProvider>();
   app.removeContentTypeParser('text/plain');
   app.setValidatorCompiler(validatorCompiler);
@@ -162,7 +190,7 @@ export async function createHttpApp(
     );
   });
 
-  await addPlugins(app, prefix, context);
+  const guard = await addPlugins(app, prefix, context);
   await app.register(
     async (scope) => {
       const typed = scope.withTypeProvider<ZodTypeProvider>() as HttpApp;
@@ -170,6 +198,7 @@ export async function createHttpApp(
         if (!reply.hasHeader('cache-control')) reply.header('cache-control', 'no-store');
       });
       for (const add of [
+        loginRoutes,
         statusRoutes,
         unitRoutes,
         profileRoutes,
@@ -187,7 +216,7 @@ export async function createHttpApp(
     },
     { prefix },
   );
-  await addPage(app, prefix, options.pageFolder);
+  await guard.publicly(() => addPage(app, prefix, options.pageFolder));
   app.addHook('preClose', async () => stream.stop());
   return { app, stream };
 }

@@ -1,5 +1,6 @@
 import type { FastifyError, FastifyReply, FastifyRequest } from 'fastify';
 import { hasZodFastifySchemaValidationErrors } from 'fastify-type-provider-zod';
+import { withoutTokens } from './auth.js';
 import { type FaultBody, HttpFault, show } from './faults.js';
 import { keysOf } from './schema/questions.js';
 
@@ -109,6 +110,6 @@ export function errorHandler() {
       request.log.error({ err: fault.cause ?? error, url: request.url }, fault.message);
     }
     reply.code(fault.statusCode).type('application/json; charset=utf-8');
-    return fault.body();
+    return withoutTokens(fault.body());
   };
 }

@@ -3,6 +3,9 @@
  * `{"error": {code, message, field, value, expected}}`; the codes are a closed list.
  */
 export const FAULT_CODES = [
+  'not_logged_in',
+  'not_allowed',
+  'other_origin',
   'wrong_value',
   'unknown_field',
   'unknown_unit',

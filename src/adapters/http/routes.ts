@@ -6,6 +6,7 @@ import type {
   RawServerDefault,
 } from 'fastify';
 import type { ZodTypeProvider } from 'fastify-type-provider-zod';
+import type { Entrance } from './auth.js';
 import { unknownUnit } from './faults.js';
 import type { JsonWriter } from './json.js';
 import { faultSchema } from './schema/answers.js';
@@ -26,6 +27,7 @@ export interface RouteContext {
   readonly stream: LiveStream;
   readonly json: JsonWriter;
   readonly tuning: HttpTuning;
+  readonly entrance: Entrance;
 }
 
 /** One group of routes, declared within the path prefix. */

@@ -14,6 +14,18 @@ export interface HttpTuning {
   readonly events_kept: number;
   /** Messages that may wait for a slow client before its stream is ended. */
   readonly waiting_most: number;
+  /** Connections open at the same time; more are closed at once. */
+  readonly connections_most: number;
+  /** Wrong tokens a minute from one address that are answered one by one. */
+  readonly wrong_tokens_per_min: number;
+  /** Headers, and the whole of a question, have to be there by then [ms]. */
+  readonly headers_ms: number;
+  readonly request_ms: number;
+  /** A connection on which nothing moves is ended [ms]: longer than the longest answer takes. */
+  readonly idle_ms: number;
+  /** How often slow connections are looked for, and new files of the certificate [ms]. */
+  readonly look_ms: number;
+  readonly certificate_look_ms: number;
 }
 
 export const DEFAULT_TUNING: HttpTuning = {
@@ -25,4 +37,11 @@ export const DEFAULT_TUNING: HttpTuning = {
   events_at_once: 100,
   events_kept: 1_000,
   waiting_most: 200,
+  connections_most: 512,
+  wrong_tokens_per_min: 20,
+  headers_ms: 10_000,
+  request_ms: 30_000,
+  idle_ms: 180_000,
+  look_ms: 5_000,
+  certificate_look_ms: 30_000,
 };

@@ -1,6 +1,7 @@
 import { writeFileSync } from 'node:fs';
 import { join } from 'node:path';
 import { pino } from 'pino';
+import type { Access } from '../../../src/access/access.js';
 import { createHttpApp } from '../../../src/adapters/http/app.js';
 import type { HttpTuning } from '../../../src/adapters/http/tuning.js';
 import { temporaryFolder } from '../../support/folders.js';
@@ -8,7 +9,13 @@ import { ScriptedPlant } from './scriptedPlant.js';
 
 /** The HTTP app over a scripted plant, without listening, and its log lines. */
 export async function testApp(
-  options: { prefix?: string; tuning?: Partial<HttpTuning>; plant?: ScriptedPlant } = {},
+  options: {
+    prefix?: string;
+    tuning?: Partial<HttpTuning>;
+    plant?: ScriptedPlant;
+    access?: Access;
+    login_by_proxy?: boolean;
+  } = {},
 ) {
   const plant = options.plant ?? new ScriptedPlant();
   const pageFolder = temporaryFolder('page');
@@ -19,6 +26,8 @@ export async function testApp(
     log,
     pageFolder,
     ...(options.tuning === undefined ? {} : { tuning: options.tuning }),
+    ...(options.access === undefined ? {} : { access: options.access }),
+    ...(options.login_by_proxy === undefined ? {} : { login_by_proxy: options.login_by_proxy }),
   });
   const get = (url: string, headers: Record<string, string> = {}) =>
     app.inject({ method: 'GET', url, headers });

@@ -218,7 +218,7 @@ describe('the live stream', () => {
     });
     socket.on('error', () => undefined);
     socket.write(
-      'GET /api/stream?profile=north HTTP/1.1\r\nHost: x\r\nAccept: text/event-stream\r\n\r\n',
+      'GET /api/stream?profile=north HTTP/1.1\r\nHost: 127.0.0.1\r\nAccept: text/event-stream\r\n\r\n',
     );
     socket.pause();
     const metric = () => fetch(`${url}api/counters`).then((answer) => answer.json());

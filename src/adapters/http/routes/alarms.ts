@@ -69,6 +69,7 @@ const listRoutes: Routes = (app, { service }) => {
   app.get(
     '/api/alarms',
     {
+      config: { role: 'view' },
       schema: {
         operationId: 'alarms',
         summary: 'Alarms and alerts with their states, what is shown apart from what is held back',
@@ -91,6 +92,7 @@ const listRoutes: Routes = (app, { service }) => {
   app.get(
     '/api/alarms/transitions',
     {
+      config: { role: 'view' },
       schema: {
         operationId: 'alarmTransitions',
         summary: 'Every change of state: when, by whom and why; newest first',
@@ -115,6 +117,7 @@ const listRoutes: Routes = (app, { service }) => {
   app.get(
     '/api/alarms/figures',
     {
+      config: { role: 'view' },
       schema: {
         operationId: 'alarmFigures',
         summary: 'Rates, floods, chattering, stale and most frequent alarms, after ISA-18.2',
@@ -137,6 +140,7 @@ const listRoutes: Routes = (app, { service }) => {
   app.get(
     '/api/events',
     {
+      config: { role: 'view' },
       schema: {
         operationId: 'events',
         summary: 'Alarms and alerts raised and returned',
@@ -165,20 +169,34 @@ type Mutable<T> = T extends readonly (infer E)[]
     ? { -readonly [K in keyof T]: Mutable<T[K]> }
     : T;
 
-/** What only a name is asked for. */
+/** What only a name is asked for, and the least role. */
 const PLAIN = [
-  ['unshelve', 'unshelve', 'Show it again before its time on the shelf is over'],
-  ['return-to-service', 'return_to_service', 'Take an alarm or alert back into service'],
-  ['reset', 'reset', 'Release a latched alarm or alert that has returned and was acknowledged'],
+  ['unshelve', 'unshelve', 'Show it again before its time on the shelf is over', 'acknowledge'],
+  [
+    'return-to-service',
+    'return_to_service',
+    'Take an alarm or alert back into service',
+    'configure',
+  ],
+  [
+    'reset',
+    'reset',
+    'Release a latched alarm or alert that has returned and was acknowledged',
+    'acknowledge',
+  ],
 ] as const;
 
-/** What a person does: acknowledge, shelve, out of service and back. Nothing changes at the plant. */
+/**
+ * What a person does: acknowledge, shelve, out of service and back. Nothing changes at the plant. To
+ * take out of service has no end by itself: it changes what is watched, and is for `configure`.
+ */
 const commandRoutes: Routes = (app, { service }) => {
   const response = { 200: commandedSchema.describe('Recorded'), ...faults };
 
   app.post(
     '/api/alarms/acknowledge',
     {
+      config: { role: 'acknowledge' },
       schema: {
         operationId: 'acknowledge',
         summary: 'Acknowledge an alarm or alert',
@@ -199,6 +217,7 @@ const commandRoutes: Routes = (app, { service }) => {
   app.post(
     '/api/alarms/shelve',
     {
+      config: { role: 'acknowledge' },
       schema: {
         operationId: 'shelve',
         summary: 'Hide an alarm or alert for some hours',
@@ -214,6 +233,7 @@ const commandRoutes: Routes = (app, { service }) => {
   app.post(
     '/api/alarms/out-of-service',
     {
+      config: { role: 'configure' },
       schema: {
         operationId: 'out_of_service',
         summary: 'Take an alarm or alert out of service until it is taken back',
@@ -225,10 +245,13 @@ const commandRoutes: Routes = (app, { service }) => {
     async (request) => commanded(follow(service, 'out_of_service', request.body)),
   );
 
-  for (const [path, action, summary] of PLAIN) {
+  for (const [path, action, summary, role] of PLAIN) {
     app.post(
       `/api/alarms/${path}`,
-      { schema: { operationId: action, summary, tags: TAGS, body: acknowledgeBody, response } },
+      {
+        config: { role },
+        schema: { operationId: action, summary, tags: TAGS, body: acknowledgeBody, response },
+      },
       async (request) => commanded(follow(service, action, request.body)),
     );
   }

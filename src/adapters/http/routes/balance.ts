@@ -10,7 +10,7 @@ export const balanceRoutes: Routes = (app, { service, tuning }) => {
   app.get(
     '/api/units/:unit/balance',
     {
-      config: { rateLimit: { max: tuning.hours_per_min, timeWindow: 60_000 } },
+      config: { role: 'view', rateLimit: { max: tuning.hours_per_min, timeWindow: 60_000 } },
       schema: {
         operationId: 'balance',
         summary: 'What flushing the fronts would win back, and how the two stores match',

@@ -45,7 +45,7 @@ export const capabilityRoutes: Routes = (app, { service, tuning }) => {
   app.get(
     '/api/units/:unit/capability',
     {
-      config: { rateLimit: { max: tuning.hours_per_min, timeWindow: 60_000 } },
+      config: { role: 'view', rateLimit: { max: tuning.hours_per_min, timeWindow: 60_000 } },
       schema: {
         operationId: 'capability',
         summary: 'Greatest power in both directions against state of charge, as straight lines',

@@ -56,6 +56,7 @@ export const historyRoutes: Routes = (app, { service }) => {
   app.get(
     '/api/units/:unit/history',
     {
+      config: { role: 'view' },
       schema: {
         operationId: 'history',
         summary: 'Stored series of a unit, thinned evenly to a number of points',

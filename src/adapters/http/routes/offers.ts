@@ -1,5 +1,7 @@
 import { z } from 'zod';
+import type { Holder } from '../../../access/access.js';
 import { offerTable } from '../../../core/plan/offerTable.js';
+import { requireRole } from '../auth.js';
 import { wantsCsv } from '../csv.js';
 import { HttpFault } from '../faults.js';
 import { offersCsv } from '../offerCsv.js';
@@ -24,10 +26,13 @@ const at = (ms: number): string => new Date(ms).toISOString();
 /** Answers an offer table, and keeps it where that is asked. */
 async function answerOffers(
   service: PlantService,
+  holder: Holder | null,
   now: UnitNow,
   body: z.output<typeof offersBody>,
   of: 'query' | 'body',
 ) {
+  // A kept table is a promise on record: not for whoever may only look.
+  if (body.keep) requireRole(holder, 'acknowledge');
   const { unit } = now;
   const estimate = requireEstimate(now, body.stale);
   const now_ms = Date.parse(estimate.time);
@@ -44,7 +49,10 @@ async function answerOffers(
 /** POST and GET /api/units/{unit}/offers, GET .../offers/history, .../history/{no}, .../report */
 export const offerRoutes: Routes = (app, { service, tuning }) => {
   const tags = ['ahead'];
-  const config = { rateLimit: { max: tuning.hours_per_min, timeWindow: 60_000 } };
+  const config = {
+    role: 'view',
+    rateLimit: { max: tuning.hours_per_min, timeWindow: 60_000 },
+  } as const;
   const content = {
     200: {
       description: 'JSON, or CSV after RFC 4180 by format=csv or Accept: text/csv',
@@ -77,7 +85,7 @@ export const offerRoutes: Routes = (app, { service, tuning }) => {
     },
     async (request, reply) => {
       const now = unitOf(service, request.params.unit);
-      const table = await answerOffers(service, now, request.body, 'body');
+      const table = await answerOffers(service, request.holder, now, request.body, 'body');
       reply.header('vary', 'Accept');
       if (!wantsCsv(request.body.format, request.headers.accept)) return table;
       reply.type('text/csv; charset=utf-8; header=present');
@@ -101,7 +109,7 @@ export const offerRoutes: Routes = (app, { service, tuning }) => {
     async (request, reply) => {
       const now = unitOf(service, request.params.unit);
       const { query } = request;
-      const table = await answerOffers(service, now, bodyOfQuery(query), 'query');
+      const table = await answerOffers(service, request.holder, now, bodyOfQuery(query), 'query');
       reply.header('vary', 'Accept');
       if (!wantsCsv(query.format, request.headers.accept)) return table;
       reply.type('text/csv; charset=utf-8; header=present');
@@ -112,6 +120,7 @@ export const offerRoutes: Routes = (app, { service, tuning }) => {
   app.get(
     '/api/units/:unit/offers/history',
     {
+      config: { role: 'view' },
       schema: {
         operationId: 'offersHistory',
         summary: 'Offer tables that were kept, by the time of asking',
@@ -142,6 +151,7 @@ export const offerRoutes: Routes = (app, { service, tuning }) => {
   app.get(
     '/api/units/:unit/offers/history/:no',
     {
+      config: { role: 'view' },
       schema: {
         operationId: 'offersKept',
         summary: 'A kept offer table as it was answered',

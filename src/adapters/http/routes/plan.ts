@@ -11,7 +11,10 @@ export const planRoutes: Routes = (app, context) => {
   balanceRoutes(app, context);
   const { service, tuning } = context;
   const tags = ['ahead'];
-  const config = { rateLimit: { max: tuning.hours_per_min, timeWindow: 60_000 } };
+  const config = {
+    role: 'view',
+    rateLimit: { max: tuning.hours_per_min, timeWindow: 60_000 },
+  } as const;
 
   app.get(
     '/api/units/:unit/headroom',

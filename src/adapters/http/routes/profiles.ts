@@ -37,6 +37,7 @@ export const profileRoutes: Routes = (app, { service }) => {
   app.get(
     '/api/units/:unit/profile',
     {
+      config: { role: 'view' },
       schema: {
         operationId: 'profile',
         summary: 'Temperatures along each store: estimate, sigma and readings',
@@ -59,6 +60,7 @@ export const profileRoutes: Routes = (app, { service }) => {
   app.get(
     '/api/units/:unit/profiles',
     {
+      config: { role: 'view' },
       schema: {
         operationId: 'profiles',
         summary: 'Stored profiles of a span, each with the estimate of its time, for playback',

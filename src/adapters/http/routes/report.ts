@@ -15,7 +15,7 @@ export const reportRoutes: Routes = (app, { service, tuning }) => {
   app.get(
     '/api/units/:unit/report',
     {
-      config: { rateLimit: { max: tuning.hours_per_min, timeWindow: 60_000 } },
+      config: { role: 'view', rateLimit: { max: tuning.hours_per_min, timeWindow: 60_000 } },
       schema: {
         operationId: 'report',
         summary: 'What happened to the beds in a span of time, for maintenance',

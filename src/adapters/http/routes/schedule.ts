@@ -67,7 +67,7 @@ export const scheduleRoutes: Routes = (app, { service, tuning }) => {
     '/api/units/:unit/schedule',
     {
       bodyLimit: BODY_LIMIT,
-      config: { rateLimit: { max: tuning.hours_per_min, timeWindow: 60_000 } },
+      config: { role: 'view', rateLimit: { max: tuning.hours_per_min, timeWindow: 60_000 } },
       schema: {
         operationId: 'schedule',
         summary: 'Whether a schedule holds, where it first falls short, and the nearest that does',

@@ -13,7 +13,7 @@ export const statusRoutes: Routes = (app, context) => {
   const { service } = context;
   const tags = ['status'];
   // A probe must not be turned away because a page asks much.
-  const config = { rateLimit: false } as const;
+  const config = { role: 'view', rateLimit: false } as const;
 
   app.get(
     '/api/health',
@@ -41,6 +41,7 @@ export const statusRoutes: Routes = (app, context) => {
   app.get(
     '/api/counters',
     {
+      config: { role: 'view' },
       schema: {
         operationId: 'counters',
         summary: 'Counts of the daemon',
@@ -74,7 +75,8 @@ export const statusRoutes: Routes = (app, context) => {
     },
   );
 
-  app.get('/api/openapi.json', { schema: { hide: true } }, async (_request, reply) => {
+  const described = { schema: { hide: true }, config: { role: 'view' } } as const;
+  app.get('/api/openapi.json', described, async (_request, reply) => {
     reply.type('application/json; charset=utf-8');
     return JSON.stringify(app.swagger());
   });

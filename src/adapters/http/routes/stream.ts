@@ -41,12 +41,13 @@ function sinkOf(reply: FastifyReply): StreamSink {
 }
 
 /** GET /api/stream: Server-Sent Events. */
-export const streamRoutes: Routes = (app, { service, stream, tuning }) => {
+export const streamRoutes: Routes = (app, { service, stream, tuning, entrance }) => {
   app.get(
     '/api/stream',
     {
       // `manual`: the plugin's own refusal would not have the form of our errors.
       sse: { kind: 'manual', heartbeat: false },
+      config: { role: 'view' },
       schema: {
         operationId: 'stream',
         summary: 'Live stream',
@@ -89,7 +90,15 @@ export const streamRoutes: Routes = (app, { service, stream, tuning }) => {
       const lastId = request.headers['last-event-id'] ?? last_event_id ?? null;
       reply.sse.keepAlive();
       reply.sse.sendHeaders(200);
-      stream.attach(sinkOf(reply), typeof lastId === 'string' ? lastId : null, profile ?? null);
+      const sink = sinkOf(reply);
+      const { access } = entrance;
+      const { holder } = request;
+      // A token that is taken back ends what was begun with it.
+      const end = access.onChange(() => {
+        if (holder === null ? !access.isOpen : !access.stillHolds(holder)) sink.end();
+      });
+      sink.onClose(end);
+      stream.attach(sink, typeof lastId === 'string' ? lastId : null, profile ?? null);
     },
   );
 };

@@ -65,6 +65,7 @@ export const unitRoutes: Routes = (app, { service, tuning }) => {
   app.get(
     '/api/units',
     {
+      config: { role: 'view' },
       schema: {
         operationId: 'units',
         summary: 'All units at a glance',
@@ -86,6 +87,7 @@ export const unitRoutes: Routes = (app, { service, tuning }) => {
   app.get(
     '/api/units/:unit',
     {
+      config: { role: 'view' },
       schema: {
         operationId: 'unit',
         summary: 'A unit now: definition, estimate, hours, age of its data',
@@ -108,7 +110,7 @@ export const unitRoutes: Routes = (app, { service, tuning }) => {
   app.get(
     '/api/units/:unit/hours',
     {
-      config: { rateLimit: { max: tuning.hours_per_min, timeWindow: 60_000 } },
+      config: { role: 'view', rateLimit: { max: tuning.hours_per_min, timeWindow: 60_000 } },
       schema: {
         operationId: 'hours',
         summary: 'Hours and energy left at given powers, from the present estimate',
@@ -127,7 +129,7 @@ export const unitRoutes: Routes = (app, { service, tuning }) => {
   app.get(
     '/api/units/:unit/sensors',
     {
-      config: { rateLimit: { max: tuning.hours_per_min, timeWindow: 60_000 } },
+      config: { role: 'view', rateLimit: { max: tuning.hours_per_min, timeWindow: 60_000 } },
       schema: {
         operationId: 'sensors',
         summary: 'What losing each thermocouple would do to sigma, and where one more would help',

@@ -20,6 +20,7 @@ export const watchRoutes: Routes = (app, { service }) => {
   app.get(
     '/api/units/:unit/watch',
     {
+      config: { role: 'view' },
       schema: {
         operationId: 'watch',
         summary: 'What the indicators show, and what is probably behind it',
@@ -44,6 +45,7 @@ export const watchRoutes: Routes = (app, { service }) => {
   app.get(
     '/api/units/:unit/watch/history',
     {
+      config: { role: 'view' },
       schema: {
         operationId: 'watchHistory',
         summary: 'What the indicators showed over a span of time, as columns',
@@ -74,6 +76,7 @@ export const watchRoutes: Routes = (app, { service }) => {
   app.get(
     '/api/units/:unit/cycles',
     {
+      config: { role: 'view' },
       schema: {
         operationId: 'cycles',
         summary: 'Charges, stands and discharges that are over: energies, losses, widths',

@@ -1,0 +1,131 @@
+import { statSync } from 'node:fs';
+import { readFile } from 'node:fs/promises';
+import { createServer, type RequestListener, type Server } from 'node:http';
+import { createServer as createSecureServer, type Server as SecureServer } from 'node:https';
+import type { Socket } from 'node:net';
+import type { ServerTls } from '../../config/site.js';
+import { reasonOf } from '../../errors.js';
+import type { HttpTuning } from './tuning.js';
+
+/** Nothing older is spoken. */
+export const LEAST_TLS = 'TLSv1.2';
+/** Request line and headers together [bytes]; Node answers more with 431. */
+const MOST_HEADER_BYTES = 16 * 1024;
+
+/** Servers of one app: Node's, with their limits; for `localhost` there are two of them. */
+export class Servers {
+  private readonly secure: SecureServer[] = [];
+  private timer: NodeJS.Timeout | null = null;
+  private stamp: string;
+
+  constructor(
+    private readonly tuning: HttpTuning,
+    private readonly tls: ServerTls | null,
+    private readonly say: {
+      info(text: string): void;
+      error(text: string): void;
+    },
+  ) {
+    this.stamp = this.stampOf();
+  }
+
+  /** Slow senders of headers and bodies are ended, idle connections too; the number is bounded. */
+  readonly make = (handler: RequestListener): Server => {
+    const { headers_ms, request_ms, idle_ms, look_ms, connections_most } = this.tuning;
+    const limits = {
+      headersTimeout: headers_ms,
+      requestTimeout: request_ms,
+      connectionsCheckingInterval: look_ms,
+      maxHeaderSize: MOST_HEADER_BYTES,
+    };
+    let server: Server;
+    if (this.tls === null) server = createServer(limits, handler);
+    else {
+      const { cert, key } = this.tls;
+      const secure = createSecureServer(
+        { ...limits, cert, key, minVersion: LEAST_TLS, handshakeTimeout: headers_ms },
+        handler,
+      );
+      this.secure.push(secure);
+      server = secure;
+    }
+    server.maxConnections = connections_most;
+    server.setTimeout(idle_ms);
+    return server;
+  };
+
+  /** Looks at the files of the certificate from time to time and takes over what is new in them. */
+  start(): void {
+    if (this.tls === null) return;
+    this.timer ??= setInterval(() => void this.renew(), this.tuning.certificate_look_ms);
+    this.timer.unref();
+  }
+
+  stop(): void {
+    if (this.timer !== null) clearInterval(this.timer);
+    this.timer = null;
+  }
+
+  private async renew(): Promise<void> {
+    const stamp = this.stampOf();
+    if (this.tls === null || stamp === this.stamp) return;
+    this.stamp = stamp;
+    const { cert_file, key_file } = this.tls;
+    try {
+      const [cert, key] = await Promise.all([readFile(cert_file), readFile(key_file)]);
+      const context = { cert, key, minVersion: LEAST_TLS } as const;
+      for (const server of this.secure) server.setSecureContext(context);
+      this.say.info('http.tls: takes over the new certificate');
+    } catch (thrown) {
+      // As long as one of the two files is the old one, they do not fit; the next look tells more.
+      this.say.error(
+        `http.tls: goes on with the certificate before; ${cert_file} and ${key_file} cannot be used: ${reasonOf(thrown)}`,
+      );
+    }
+  }
+
+  private stampOf(): string {
+    if (this.tls === null) return '';
+    return [this.tls.cert_file, this.tls.key_file].map(stampOf).join();
+  }
+}
+
+function stampOf(file: string): string {
+  const found = statSync(file, { throwIfNoEntry: false });
+  return found === undefined ? 'gone' : `${found.mtimeMs} ${found.size} ${found.ino}`;
+}
+
+const STATUS: Readonly<Record<string, readonly [status: number, reason: string, words: string]>> = {
+  HPE_HEADER_OVERFLOW: [
+    431,
+    'Request Header Fields Too Large',
+    `address and headers have more than ${MOST_HEADER_BYTES} bytes`,
+  ],
+  ERR_HTTP_REQUEST_TIMEOUT: [
+    408,
+    'Request Timeout',
+    'the question did not come to its end in time',
+  ],
+};
+
+/** What is no HTTP at all, too long or too slow, answered in the form of all errors. */
+export function answerClientError(error: NodeJS.ErrnoException, socket: Socket): void {
+  if (error.code === 'ECONNRESET' || socket.destroyed || !socket.writable) {
+    socket.destroy();
+    return;
+  }
+  const [status, reason, message] = STATUS[error.code ?? ''] ?? [
+    400,
+    'Bad Request',
+    'this is not HTTP that can be read',
+  ];
+  const fault = { code: 'unreadable_body', message, field: null, value: null, expected: null };
+  const body = JSON.stringify({ error: fault });
+  const lines = [
+    `HTTP/1.1 ${status} ${reason}`,
+    'content-type: application/json; charset=utf-8',
+    `content-length: ${Buffer.byteLength(body)}`,
+    'connection: close',
+  ];
+  socket.end(`${lines.join('\r\n')}\r\n\r\n${body}`);
+}
