@@ -170,8 +170,8 @@ export function disagreement(
 function measuredPosition(fit: FrontFit, input: FrontViewInput): TrackedMeasurement {
   const whole = fit.covariance[0]!;
   const white = fit.white[0]!;
-  const lasting =
-    fit.width_m === null ? whole : Math.max(0, whole - white) + (SHAPE_ERROR * fit.width_m) ** 2;
+  const scale = fit.width_m ?? fit.scale_m;
+  const lasting = scale === null ? whole : Math.max(0, whole - white) + (SHAPE_ERROR * scale) ** 2;
   return {
     value: fit.position_m - (input.readingShift_m ?? 0),
     white,

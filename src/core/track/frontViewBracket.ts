@@ -83,6 +83,7 @@ export function bracketFront(
     seen: true,
     position_m: 0.5 * (from + to),
     width_m: null,
+    scale_m: null,
     hot_plateau_K: hotFirst ? A : B,
     cold_plateau_K: hotFirst ? B : A,
     covariance,

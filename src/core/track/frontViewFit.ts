@@ -2,7 +2,7 @@ import { requireNotNegative, requirePositive } from '../misuse.js';
 import { findFronts } from './fronts.js';
 import type { Shape } from './frontViewAlgebra.js';
 import { bracketFront, steepReadings } from './frontViewBracket.js';
-import { publishFront } from './frontViewPublish.js';
+import { BAD_MISFIT, publishFront } from './frontViewPublish.js';
 import { type FrontData, type FrontPrior, solveFront } from './frontViewSolve.js';
 
 /** One thermocouple of a string that gave a value this scan. */
@@ -45,6 +45,11 @@ export interface FrontFit {
    * where it does not reach them, or fewer than two readings stand in it.
    */
   readonly width_m: number | null;
+  /**
+   * Sigma of the fitted curve [m], where it stands in readings: by it its shape may err, whether or not
+   * it reaches the levels of a width. null for a front that is narrower than their spacing.
+   */
+  readonly scale_m: number | null;
   readonly hot_plateau_K: number;
   readonly cold_plateau_K: number;
   /**
@@ -69,9 +74,11 @@ export interface NoFrontFit {
 const PLATEAU_PRIOR = 0.1;
 /** Sigma of the prior on the skew: at 0.15 one half is 1.13 times as wide as the other. */
 const SKEW_PRIOR = 0.15;
-/** A fit whose squared residuals are this many times too large is tried without its worst reading, */
-const BAD_MISFIT = 4;
-/** and that is taken where it makes them smaller by this factor, with at least as many left. */
+/**
+ * A fit of BAD_MISFIT is tried without its worst reading, and that is taken where it makes the squared
+ * residuals smaller by this factor, with at least as many left. Not without the first or the last one:
+ * what differs there alone is a new front that enters.
+ */
 const BETTER = 4;
 const LEAST_LEFT = 6;
 
@@ -88,7 +95,8 @@ const LEAST_LEFT = 6;
  * degrees of freedom (Birge 1932); where they are four times smaller without the worst reading, it
  * is left out instead (`left_out`): sensors are judged elsewhere, but one that fails now must not
  * bend the view until then. A front with fewer than two readings in its steep part has no width, and
- * its position is that of `bracketFront`.
+ * its position is that of `bracketFront`. That is for narrow fronts alone: a wide one whose fit does not
+ * settle (a new front that has run into the old one is no shape of this kind) is not seen.
  *
  * @param readings any order; missing ones as NaN
  * @param references charged and discharged temperature [K]
@@ -142,14 +150,18 @@ export function fitFront(
   ];
   const solution = solveFront(data, prior, start);
   if (solution !== null && steepReadings(data, solution.parameters) >= 2) {
-    if (solution.misfit > BAD_MISFIT && sorted.length > LEAST_LEFT) {
-      const fewer = columns(sorted.filter((_, i) => i !== solution.worst));
+    const { misfit, worst } = solution;
+    const isInside = worst > 0 && worst < sorted.length - 1;
+    if (misfit > BAD_MISFIT && isInside && sorted.length > LEAST_LEFT) {
+      const fewer = columns(sorted.filter((_, i) => i !== worst));
       const better = solveFront(fewer, prior, solution.parameters);
-      if (better !== null && BETTER * better.misfit < solution.misfit)
+      if (better !== null && BETTER * better.misfit < misfit)
         return publishFront(better, fewer, references, 1);
     }
     return publishFront(solution, data, references, 0);
   }
+  // Between the references, as there is no curve to tell its plateaus.
+  if (solution === null && steepReadings(data, start) >= 2) return none('not_settled');
   return bracketFront(data, prior, front.position_m) ?? none('not_settled');
 }
 

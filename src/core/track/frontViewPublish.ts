@@ -5,6 +5,8 @@ import type { FrontData, FrontSolution } from './frontViewSolve.js';
 
 /** Nearer to a plateau than this share of the fitted step, a level is not passed with any certainty. */
 const NEAR_PLATEAU = 0.02;
+/** A fit whose squared residuals are this many times too large has another shape, or a reading that is wrong. */
+export const BAD_MISFIT = 4;
 const LEVELS = { low: 0.16, middle: 0.5, high: 0.84 };
 
 /**
@@ -13,6 +15,11 @@ const LEVELS = { low: 0.16, middle: 0.5, high: 0.84 };
  * The curve passes the level T at x = p + w sinh(asinh(z) - e), Phi(z) = (T - A)/(B - A). Position is
  * the place of theta = 0.5 of the references, inside the readings only; width half the distance
  * between those of 0.16 and 0.84.
+ *
+ * Where squared residuals are more than BAD_MISFIT times too large the front is of another kind, as a new
+ * one that runs into an old, wide one: readings on plateaus fit none the less, so that Birge's factor, a
+ * mean over the string, says too little. What is left is that the middle is passed between two readings,
+ * gap^2/12; it is added by the share of the residuals that is beyond.
  */
 export function publishFront(
   solution: FrontSolution,
@@ -49,13 +56,17 @@ export function publishFront(
     inletIsHot ? A : B,
     inletIsHot ? B : A,
   ];
+  const covariance = carry(rows, solution.covariance, Math.max(1, solution.misfit));
+  const beyond = Math.max(0, 1 - BAD_MISFIT / solution.misfit);
+  covariance[0]! += (beyond * gapAbout(data.x_m, middle.x_m) ** 2) / 12;
   return {
     seen: true,
     position_m: middle.x_m,
     width_m: width?.value ?? null,
+    scale_m: Math.exp(shape[1]),
     hot_plateau_K: inletIsHot ? shape[2] : shape[3],
     cold_plateau_K: inletIsHot ? shape[3] : shape[2],
-    covariance: carry(rows, solution.covariance, Math.max(1, solution.misfit)),
+    covariance,
     white: carry(rows, solution.white, 1),
     misfit: solution.misfit,
     left_out,
@@ -81,6 +92,13 @@ function crossing(
     x_m: p + w * u,
     gradient: [1, w * u, -(1 - share) * perShare, -share * perShare, -w * c],
   };
+}
+
+/** Distance of the two places about one among them [m]. */
+function gapAbout(x_m: Float64Array, at_m: number): number {
+  let right = 1;
+  while (right < x_m.length - 1 && x_m[right]! < at_m) right++;
+  return x_m[right]! - x_m[right - 1]!;
 }
 
 /** factor M C M' for four rows M of five, 4 x 4 row-major, exactly symmetric. */

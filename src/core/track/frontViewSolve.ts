@@ -35,7 +35,9 @@ export interface FrontSolution {
   readonly worst: number;
 }
 
+/** Steps towards weights that the next pass changes, and towards what is given. */
 const MOST_STEPS = 60;
+const MOST_LAST_STEPS = 240;
 /** Done when a step would gain less than this in the sum of squares: a thousandth of a sigma. */
 const ENOUGH = 1e-6;
 
@@ -55,7 +57,9 @@ const N = SHAPE_SIZE;
  *   dT/dp = -D c/(sqrt(1 + u^2) w),  dT/dln w = u w dT/dp,  dT/de = D c,  dT/dA = 1 - Phi,  dT/dB = Phi
  *
  * A reading's variance is white^2 + lasting^2 + (dT/dx place)^2; the last term needs the slope and
- * is taken from the solution before, twice. Covariance: H^-1 of the final weights; of it the white
+ * is taken from the solution before, twice. Only the last pass has to settle: where a plateau lies
+ * outside the readings, it, width and place of the inflection make up for each other along a bent
+ * valley, and sharp weights take a hundred steps and more along it, those with places a few. Covariance: H^-1 of the final weights; of it the white
  * part is H^-1 J' W S W J H^-1 with S the white variances.
  *
  * @returns null where the steps do not settle
@@ -67,9 +71,10 @@ export function solveFront(data: FrontData, prior: FrontPrior, start: Shape): Fr
   const passes = data.place_m.some((place) => place > 0) ? 3 : 1;
   for (let pass = 0; pass < passes; pass++) {
     weigh(data, at, weights);
-    const settled = descend(data, weights, prior, at);
-    if (settled === null) return null;
-    at = settled;
+    const isLast = pass === passes - 1;
+    const reached = descend(data, weights, prior, at, isLast ? MOST_LAST_STEPS : MOST_STEPS);
+    if (reached === null || (isLast && !reached.settled)) return null;
+    at = reached.at;
   }
   const system = normalEquations(data, weights, prior, at);
   const factor = cholesky(system.matrix, 0);
@@ -102,16 +107,18 @@ function weigh(data: FrontData, at: Shape, weights: Float64Array): void {
   }
 }
 
+/** @returns where the steps led to; null where no step leads down any more */
 function descend(
   data: FrontData,
   weights: Float64Array,
   prior: FrontPrior,
   start: Shape,
-): Shape | null {
+  most: number,
+): { readonly at: Shape; readonly settled: boolean } | null {
   let at = start;
   let system = normalEquations(data, weights, prior, at);
   let damping = 1e-3;
-  for (let step = 0; step < MOST_STEPS; step++) {
+  for (let step = 0; step < most; step++) {
     const factor = cholesky(system.matrix, damping);
     if (factor === null) {
       damping *= 10;
@@ -128,15 +135,15 @@ function descend(
       at = next;
       system = trial;
       damping = Math.max(1e-9, damping / 10);
-      if (gain < ENOUGH && shorten === 1 && damping < 1e-2) return at;
+      if (gain < ENOUGH && shorten === 1 && damping < 1e-2) return { at, settled: true };
     } else {
       // At the minimum round-off alone decides the sign of a gain far below `ENOUGH`.
-      if (-gain < 1e-12 * (1 + system.squares)) return at;
+      if (-gain < 1e-12 * (1 + system.squares)) return { at, settled: true };
       damping *= 10;
       if (damping > 1e12) return null;
     }
   }
-  return null;
+  return { at, settled: false };
 }
 
 interface NormalEquations {
