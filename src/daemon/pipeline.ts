@@ -82,7 +82,7 @@ export class Pipeline {
     this.scheduled = null;
     if (this.retry) clearTimeout(this.retry);
     this.retry = null;
-    for (const runner of this.options.runners) this.save(runner);
+    for (const runner of this.options.runners) this.save(runner, true);
     for (const resolve of this.idle.splice(0)) resolve();
   }
 
@@ -250,7 +250,8 @@ export class Pipeline {
     if (due !== undefined || runner.unsaved) this.save(runner);
   }
 
-  private save(runner: UnitRunner): void {
+  /** @param last with the newest profile, which is shown until the next start has its own */
+  private save(runner: UnitRunner, last = false): void {
     const { history } = this.options;
     const checkpoint = runner.checkpoint();
     if (!checkpoint) return;
@@ -258,7 +259,7 @@ export class Pipeline {
       history.write(() => {
         history.checkpoints.add(runner.unit, checkpoint);
         runner.unsaved = false;
-        if (runner.view.profile) history.profiles.add(runner.view.profile, true);
+        if (last && runner.view.profile) history.profiles.add(runner.view.profile, true);
       });
     } catch (thrown) {
       this.storeFailed('history_failures', thrown);

@@ -29,6 +29,13 @@ function change(site: SiteConfig, sql: string): void {
   database.close();
 }
 
+function storedTimes(site: SiteConfig, table: 'profiles' | 'estimates'): number[] {
+  const database = new SQLite(join(site.store.folder, 'history.sqlite'));
+  const times = database.prepare(`SELECT time FROM ${table} ORDER BY time`).pluck().all();
+  database.close();
+  return times as number[];
+}
+
 /** What the newest checkpoint of a stopped daemon holds. */
 function lastImage(site: SiteConfig): unknown {
   const database = new SQLite(join(site.store.folder, 'history.sqlite'));
@@ -82,6 +89,22 @@ describe('a daemon that was killed', () => {
     expect(counters.scans).toBe(80 - left);
     // What is replayed was counted when it came.
     expect(counters.taken).toBe(0);
+  });
+
+  it('keeps one profile per ten minutes, however often it saves itself, and the last before a stop', async () => {
+    const site = await worked();
+    const stored = storedTimes(site, 'profiles');
+    const all = storedTimes(site, 'estimates');
+    const stretchOf = (time_ms: number) => Math.floor(time_ms / 600_000);
+    const firsts = all.filter((time, i) => i === 0 || stretchOf(time) !== stretchOf(all[i - 1]!));
+    expect(firsts.length).toBeGreaterThan(3);
+    expect(stored).toEqual([...new Set([...firsts, all.at(-1)!])]);
+    change(
+      site,
+      `DELETE FROM checkpoints WHERE time = ${LAST}; DELETE FROM estimates WHERE time > ${LAST};`,
+    );
+    await restarted(site);
+    expect(storedTimes(site, 'profiles')).toEqual(stored);
   });
 
   it('before its first checkpoint makes everything again from the journal', async () => {

@@ -9,24 +9,38 @@ const EVERY_MS = 600_000;
 const PER_K = 1000;
 
 /**
- * Temperature profiles with the readings they were estimated from, by unit and time: every 10 minutes
- * of source time, deflated. Rows of older versions are JSON as it is.
+ * Temperature profiles with the readings they were estimated from, by unit and time: the first of each
+ * 10 minutes of source time, counted from the full hour, deflated. What is kept tells which have theirs:
+ * neither a restart nor a replay of the journal keeps more. Rows of older versions are JSON as it is.
  */
 export class Profiles {
-  private readonly due = new Map<string, number>();
-
   constructor(private readonly database: Database) {}
 
-  /** Keeps a profile where it is due; with `always` this one in any case. */
+  /** Keeps a profile if it is the first of its 10 minutes; with `always` this one in any case. */
   add(profile: ProfileView, always = false): void {
     const time_ms = Date.parse(profile.time);
-    const due_ms = this.due.get(profile.unit) ?? Number.NEGATIVE_INFINITY;
-    if (!always && time_ms < due_ms) return;
-    const stretch = Math.floor(time_ms / EVERY_MS) + 1;
-    this.due.set(profile.unit, stretch * EVERY_MS);
+    if (!always && this.hasOneWith(profile.unit, time_ms)) return;
     this.database
-      .prepare('INSERT OR REPLACE INTO profiles (unit, time, json) VALUES (?, ?, ?)')
+      .prepare('INSERT OR IGNORE INTO profiles (unit, time, json) VALUES (?, ?, ?)')
       .run(profile.unit, time_ms, packed(profile));
+  }
+
+  /** Puts a profile that was made again in the place of those of the rest of its 10 minutes. */
+  revise(profile: ProfileView, from_ms: number): void {
+    const time_ms = Date.parse(profile.time);
+    const end = (Math.floor(time_ms / EVERY_MS) + 1) * EVERY_MS;
+    this.database
+      .prepare('DELETE FROM profiles WHERE unit = ? AND time >= ? AND time < ?')
+      .run(profile.unit, from_ms, end);
+    this.add(profile);
+  }
+
+  private hasOneWith(unit: string, time_ms: number): boolean {
+    const from = Math.floor(time_ms / EVERY_MS) * EVERY_MS;
+    const found = this.database
+      .prepare('SELECT 1 FROM profiles WHERE unit = ? AND time BETWEEN ? AND ? LIMIT 1')
+      .get(unit, from, from + EVERY_MS - 1);
+    return found !== undefined;
   }
 
   latest(unit: string): ProfileView | null {

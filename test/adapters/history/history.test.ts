@@ -118,18 +118,26 @@ describe('estimates', () => {
     after.stop();
   });
 
-  it('keep one profile per ten minutes, and the newest where asked', () => {
-    const history = opened();
+  it('keep one profile per ten minutes, and the newest where asked, over restarts and replays', () => {
+    const folder = temporaryFolder('history');
     const profile = (i: number) => ({
       time: new Date(T + i * 30_000).toISOString(),
       unit: 'u',
       stores: {},
     });
-    for (let i = 0; i < 50; i++) history.profiles.add(profile(i));
-    expect(history.profiles.latest('u')?.time).toBe(profile(40).time);
+    const kept = ({ profiles }: History) =>
+      profiles.spread('u', T, T + DAY, 100).rows.map(({ time }) => (Date.parse(time) - T) / 30_000);
+    const history = opened(folder);
+    for (let i = 9; i < 50; i++) history.profiles.add(profile(i));
+    expect(kept(history)).toEqual([9, 20, 40]);
     history.profiles.add(profile(49), true);
-    expect(history.profiles.latest('u')?.time).toBe(profile(49).time);
+    expect(kept(history)).toEqual([9, 20, 40, 49]);
     history.stop();
+    const again = opened(folder);
+    expect(again.profiles.latest('u')?.time).toBe(profile(49).time);
+    for (let i = 15; i < 70; i++) again.profiles.add(profile(i));
+    expect(kept(again)).toEqual([9, 20, 40, 49, 60]);
+    again.stop();
   });
 });
 

@@ -5,6 +5,13 @@ import { neighbour, secondsOf } from './moments.js';
 import type { Playback, PlayedMoment } from './wire.js';
 
 const SPEEDS = ['2', '5', '12'];
+/** Keys that step from stored moment to stored moment, whatever lies between them. */
+const WAYS: Readonly<Record<string, -1 | 1>> = {
+  ArrowLeft: -1,
+  ArrowDown: -1,
+  ArrowRight: 1,
+  ArrowUp: 1,
+};
 
 /** Slider, steps and playing over stored moments. It plays only when somebody asks for it. */
 export function Player({
@@ -23,8 +30,9 @@ export function Player({
   const [speed, setSpeed] = useState('5');
   const first = secondsOf(profiles[0]!);
   const last = secondsOf(profiles.at(-1)!);
+  // A step goes from the moment that is shown; where nothing is, from the time that was chosen.
   const now = useRef(at_s);
-  now.current = at_s;
+  now.current = moment === null ? at_s : secondsOf(moment);
 
   const step = (way: -1 | 1): boolean => {
     const next = neighbour(profiles, now.current, way);
@@ -56,8 +64,15 @@ export function Player({
         aria-valuetext={words}
         min={first}
         max={last}
-        step={Math.max(1, Math.round(every_s))}
+        step="any"
         value={at_s}
+        onKeyDown={(event) => {
+          const way = event.ctrlKey || event.altKey || event.metaKey ? undefined : WAYS[event.key];
+          if (way === undefined) return;
+          event.preventDefault();
+          setPlaying(false);
+          step(way);
+        }}
         onInput={(event) => {
           setPlaying(false);
           onChoose(Number(event.currentTarget.value));
