@@ -8,7 +8,7 @@ import {
   power,
   withSigma,
 } from '../../../src/adapters/page/lib/format.js';
-import { roundHours, typedPower } from '../../../src/adapters/page/lib/powers.js';
+import { isSamePower, roundHours, typedPower } from '../../../src/adapters/page/lib/powers.js';
 
 describe('figures in words', () => {
   it('shows a missing figure as a dash, never as zero', () => {
@@ -78,4 +78,9 @@ describe('a typed power', () => {
 
 it('ends the bars at a round figure that holds the longest', () => {
   expect([0.5, 1, 7.2, 9.89, 96.1, 400].map(roundHours)).toEqual([1, 1, 8, 12, 168, 504]);
+});
+
+it('takes a reading for a configured power where it is within two hundredths of it', () => {
+  expect([1.77, 1.8, 1.83].map((read) => isSamePower(read, 1.8))).toEqual([true, true, true]);
+  expect([1.7, 1.85].map((read) => isSamePower(read, 1.8))).toEqual([false, false]);
 });

@@ -11,3 +11,9 @@ export function typedPower(text: string): number | null {
   const value = Number(plain);
   return value > 0 ? value : null;
 }
+
+const SAME_SHARE = 0.02;
+
+/** Whether a reading is that power: readings scatter, and two rows of one power would confuse. */
+export const isSamePower = (read_MW: number, power_MW: number): boolean =>
+  Math.abs(read_MW - power_MW) <= SAME_SHARE * power_MW;

@@ -13,7 +13,7 @@ import type { UnitEntry } from '../lib/model.js';
 import type { AskedHeadroom, AskedHours } from '../lib/wire.js';
 import { ChargeBar } from '../parts/ChargeBar.js';
 import { Unit } from '../parts/Unit.js';
-import { nearestToRated } from './asked.js';
+import { configuredNow, nearestToRated } from './asked.js';
 
 /** Flow and power are positive while charging: what the sign means, in words. */
 export function bySign(
@@ -70,7 +70,7 @@ export function Figures({
   const state = entry?.state ?? null;
   const estimate = state?.estimate ?? null;
   const definition = entry?.definition ?? null;
-  const now = present?.answers[0] ?? null;
+  const now = configuredNow(entry) ?? present?.answers[0] ?? null;
   const firm = now ?? nearestToRated(entry);
   const atRated = nearestToRated(entry);
   const take = headroom?.answers[0] ?? null;

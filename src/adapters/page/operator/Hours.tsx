@@ -5,7 +5,7 @@ import { model } from '../lib/page.js';
 import { roundHours, typedPower } from '../lib/powers.js';
 import type { AskedHours, LimitedAnswer } from '../lib/wire.js';
 import { Unit } from '../parts/Unit.js';
-import { useHours } from './asked.js';
+import { configuredNow, useHours } from './asked.js';
 import { HoursRow } from './HoursRow.js';
 
 const STALE = 'Stale: the unit has moved on since the estimate that this stands on.';
@@ -20,7 +20,8 @@ export function Hours({ entry, present }: { entry: UnitEntry | null; present: As
 
   const dispatch = entry?.state?.dispatch ?? null;
   const answers = dispatch?.answers ?? [];
-  const now = present?.answers ?? [];
+  const same = configuredNow(entry);
+  const now = same === null ? (present?.answers ?? []) : [];
   const chosen = told?.answers ?? [];
   const longest = [...answers, ...now, ...chosen].map((one) => one.hours.p10);
   const full_h = roundHours(Math.max(0.5, ...longest));
@@ -43,7 +44,9 @@ export function Hours({ entry, present }: { entry: UnitEntry | null; present: As
       <h2 id="hours-head">Hours left</h2>
       {now.length > 0 && <ol class="hours asked-now">{now.map((one) => row(one, 'as now'))}</ol>}
       {present?.stale && <p class="fault">{STALE}</p>}
-      <ol class="hours configured">{answers.map((one) => row(one))}</ol>
+      <ol class="hours configured">
+        {answers.map((one) => row(one, one === same ? 'as now' : undefined))}
+      </ol>
       <HoursAge entry={entry} full_h={full_h} />
       <form class="ask" onSubmit={submit}>
         <label for="power">At another power</label>

@@ -1,7 +1,8 @@
 import type { UnitEntry } from '../lib/model.js';
 import { api } from '../lib/page.js';
+import { isSamePower } from '../lib/powers.js';
 import { type Answer, useAnswer } from '../lib/useAnswer.js';
-import type { AskedHeadroom, AskedHours, DispatchAnswer } from '../lib/wire.js';
+import type { AskedHeadroom, AskedHours, DispatchAnswer, LimitedAnswer } from '../lib/wire.js';
 import { useHeld } from '../parts/useHeld.js';
 import { useSettled } from '../parts/useSettled.js';
 
@@ -34,6 +35,14 @@ export function deliveredPower(entry: UnitEntry | null): number | null {
   return delivered > 0 ? delivered : null;
 }
 
+/** The answer at a configured power where that is what is delivered now; null where none is. */
+export function configuredNow(entry: UnitEntry | null): LimitedAnswer | null {
+  const power_MW = deliveredPower(entry);
+  if (power_MW === null) return null;
+  const answers = entry?.state?.dispatch?.answers ?? [];
+  return answers.find((one) => isSamePower(power_MW, one.power_MW)) ?? null;
+}
+
 /** An answer about another unit is no answer. */
 function ofUnit<T extends { unit: string }>(answer: T | null, entry: UnitEntry | null): T | null {
   return answer !== null && answer.unit === entry?.unit ? answer : null;
@@ -49,9 +58,10 @@ export function useHours(entry: UnitEntry | null, power_MW: number | null): Answ
   return { ...asked, answer: ofUnit(asked.answer, entry) };
 }
 
-/** Hours at the power that is delivered now. */
+/** Hours at the power that is delivered now; null where that is a configured one. */
 export function usePresentHours(entry: UnitEntry | null): AskedHours | null {
-  const power_MW = useSettled(deliveredPower(entry), HOURS_EVERY_MS);
+  const asked_MW = configuredNow(entry) === null ? deliveredPower(entry) : null;
+  const power_MW = useSettled(asked_MW, HOURS_EVERY_MS);
   return useHours(entry, power_MW).answer;
 }
 
