@@ -153,6 +153,7 @@ class RockhourDaemon implements Daemon {
       ...{ config: site.mqtt, site: site.name, version, intake: this.intake, clock, log, notices },
       counters,
       units: [...this.runners.keys()],
+      access: this.access,
       command: (command, unit) => this.alarms.command(command, unit),
       connected: () => this.housekeeping.allowClosing(),
     });

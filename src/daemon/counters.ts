@@ -39,6 +39,10 @@ const OWN_COUNTS = [
   'alarm_commands_malformed',
   /** Answers to such commands that could not be sent. */
   'alarm_answers_lost',
+  /** At its own broker: log-ins, messages and subscriptions that were refused. */
+  'broker_logins_refused',
+  'broker_publishes_refused',
+  'broker_subscriptions_refused',
   /** Journal entries of a unit or channel that is no longer configured. */
   'unconfigured',
   'questions',

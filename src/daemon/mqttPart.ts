@@ -1,9 +1,12 @@
+import type { Access } from '../access/access.js';
 import type { AlarmAnswer } from '../adapters/http/service.js';
 import { AlarmCommands } from '../adapters/mqtt/alarmCommands.js';
 import { Announcer } from '../adapters/mqtt/announcer.js';
 import { EmbeddedBroker } from '../adapters/mqtt/broker.js';
+import type { DoorOptions } from '../adapters/mqtt/door.js';
 import type { Intake } from '../adapters/mqtt/intake.js';
 import { MqttLink } from '../adapters/mqtt/link.js';
+import { TopicSet } from '../adapters/mqtt/topicRules.js';
 import type { MqttConfig } from '../config/site.js';
 import { withoutCredentials } from '../errors.js';
 import type { Log } from '../log.js';
@@ -28,6 +31,8 @@ export interface MqttPartOptions {
   readonly counters: Counters;
   /** Ids of the units. */
   readonly units: readonly string[];
+  /** Who may come in at its own broker. */
+  readonly access: Access;
   /** Follows a command about an alarm of a unit. */
   command(command: unknown, unit: string): AlarmAnswer;
   /** The broker can be reached, at the start and after each outage. */
@@ -48,7 +53,6 @@ export class MqttPart {
   constructor(private readonly options: MqttPartOptions) {
     const { config, intake } = options;
     const { embedded_host, embedded_port, url } = config;
-    this.broker = url === null ? new EmbeddedBroker(embedded_host, embedded_port) : null;
     this.commands = new AlarmCommands({
       ...{ prefix: config.out_prefix, units: options.units },
       now: () => options.clock.now(),
@@ -65,12 +69,14 @@ export class MqttPart {
       },
       lost: () => options.counters.add('alarm_answers_lost'),
     });
+    this.broker =
+      url === null ? new EmbeddedBroker(embedded_host, embedded_port, this.door()) : null;
     this.link = new MqttLink({
       // Asked for at the start: the port of an embedded broker is known only then.
       url: () => this.url,
       client_id: config.client_id,
-      username: config.username,
-      password: config.password,
+      username: this.broker?.login?.username ?? config.username,
+      password: this.broker?.login?.password ?? config.password,
       // The embedded broker speaks 3.1.1 only.
       protocol: this.broker ? 4 : config.protocol,
       qos: config.qos,
@@ -162,6 +168,18 @@ export class MqttPart {
     this.options.intake.stop();
     this.announcer.stop();
     await this.link.stop();
+  }
+
+  private door(): DoorOptions {
+    const { access, config, intake, counters, notices } = this.options;
+    return {
+      ...{ access, client_id: config.client_id, out_prefix: config.out_prefix },
+      ...{ readings: new TopicSet(intake.topics), commands: this.commands.topics },
+      refused: (what, text) => {
+        counters.add(`broker_${what}_refused`);
+        notices.warn(`broker_${what}_refused`, `its own broker refused: ${text}`);
+      },
+    };
   }
 
   private get url(): string {
