@@ -182,7 +182,10 @@ export class Alarms {
     return rows.map((row) => ({ ...row, time: new Date(row.time).toISOString() }));
   }
 
-  /** What was shown as unacknowledged in a span, of one class, in order of time. */
+  /**
+   * What was shown as unacknowledged in a span, of one class, in order of time: with the priority that it
+   * was raised with last, which the time left may have made another than that of its kind.
+   */
   annunciations(
     unit: string | undefined,
     which: WatchEvent['class'],
@@ -192,17 +195,21 @@ export class Alarms {
     const kinds = LISTED.filter((kind) => KIND_CLASSES[kind].class === which);
     const rows = this.database
       .prepare(
-        `SELECT id, kind, time AS time_ms FROM alarm_transitions
-         WHERE time BETWEEN ? AND ? AND (? IS NULL OR unit = ?) AND after = 'unacknowledged'
+        `SELECT id, kind, time AS time_ms,
+           (SELECT json_extract(json, '$.priority') FROM events WHERE events.id = alarm_transitions.id
+             AND transition = 'raised' AND events.time <= alarm_transitions.time
+             ORDER BY events.time DESC LIMIT 1) AS priority
+         FROM alarm_transitions WHERE time BETWEEN ? AND ? AND (? IS NULL OR unit = ?) AND after = 'unacknowledged'
            AND before IS NOT 'unacknowledged' AND kind IN (${marks(kinds)}) ORDER BY time, no`,
       )
       .all(from_ms, to_ms, unit ?? null, unit ?? null, ...kinds) as {
       id: string;
       kind: EventKind;
       time_ms: number;
+      priority: WatchEvent['priority'] | null;
     }[];
-    return rows.map(({ id, kind, time_ms }) => {
-      return { id, time_ms, priority: KIND_CLASSES[kind].priority };
+    return rows.map(({ id, kind, time_ms, priority }) => {
+      return { id, time_ms, priority: priority ?? KIND_CLASSES[kind].priority };
     });
   }
 

@@ -13,6 +13,11 @@ const BACK_LOST_MS = 10 * 60_000;
 /** What is further off is for whoever plans, not for the operator; and back from it. */
 const WITHIN_MS = 60 * 60_000;
 const BACK_WITHIN_MS = 75 * 60_000;
+/**
+ * Less is no time to act: to see it, to choose a power and to set it. No alarm is raised then: the run is
+ * over before anything came of it, and an outlet past its limit while it goes on is an alarm by itself.
+ */
+export const LEAST_LEFT_MS = 5 * 60_000;
 /** High is what leaves little time, or costs an hour of power that was told. */
 const HURRY_MS = 15 * 60_000;
 const MUCH_LOST_MS = 60 * 60_000;
@@ -48,8 +53,8 @@ interface Judged {
  * A discharge that runs to its end as told is no alarm: hours announce it, the cycle log records it.
  * The operator has to act where
  *
- * - it ends before what was told as firm (p90), by a quarter of an hour at least, and within the hour:
- *   of the store whose outlet, or without whose outlet nearest to its limit, ends it;
+ * - it ends before what was told as firm (p90), by a quarter of an hour at least, and within the hour,
+ *   but no sooner than he can act, in five minutes; one that stands by then goes on standing: of the store whose outlet, or without whose outlet nearest to its limit, ends it;
  * - an outlet is past its limit by the deadband, and the unit still discharges;
  * - an outlet is near its limit and nothing was told, as the estimate or the power was not known.
  *
@@ -116,7 +121,8 @@ function judge(
   const lost_ms = told.end_ms - end_ms;
   if (end_ms >= told.firm_ms || lost_ms < BACK_LOST_MS) return { evidence: back, why };
   if (end_ms - time_ms > BACK_WITHIN_MS) return { evidence: back, why };
-  const acts = lost_ms >= LEAST_LOST_MS && end_ms - time_ms <= WITHIN_MS;
+  const left_ms = end_ms - time_ms;
+  const acts = lost_ms >= LEAST_LOST_MS && left_ms <= WITHIN_MS && left_ms >= LEAST_LEFT_MS;
   return { evidence: acts ? 'active' : 'between', why };
 }
 

@@ -10,6 +10,7 @@ import type { Mode } from '../../../src/core/definitions.js';
 import type { EventKind, WatchEvent } from '../../../src/core/watch/event.js';
 import { KIND_CLASSES } from '../../../src/core/watch/kinds.js';
 import { temporaryFolder } from '../../support/folders.js';
+import { makeOlder } from './older.js';
 
 const T = Date.UTC(2026, 0, 31);
 const H = 3_600_000;
@@ -61,6 +62,24 @@ describe('alarms in the history', () => {
     expect(last).toMatchObject({ what: 'returned', before: 'acknowledged', after: 'normal' });
     expect(alarms.transitions({ unit: 'other' }, 0, 1e15, 9)).toEqual([]);
     expect(alarms.transitions({ id: 'u/front_spread/hot' }, T, T, 9)).toHaveLength(1);
+  });
+
+  it('are counted with the priority that they were raised with, not with that of their kind', () => {
+    const { events, alarms, giveBack, say } = opened();
+    const raised = (time_ms: number, priority: WatchEvent['priority']) =>
+      events.add({
+        ...{ id: 'u/outlet_near_limit/hot', unit: 'u', kind: 'outlet_near_limit', subject: 'hot' },
+        ...{ class: 'alarm', priority, transition: 'raised', value: 1, limit: 2, message: 'early' },
+        time: new Date(time_ms).toISOString(),
+      });
+    raised(T, 'medium');
+    giveBack('outlet_near_limit', T + 1000);
+    say('acknowledge', 'u/outlet_near_limit/hot', T + 2000);
+    raised(T + 3000, 'high');
+    expect(alarms.annunciations('u', 'alarm', T, T + H)).toEqual([
+      { id: 'u/outlet_near_limit/hot', time_ms: T, priority: 'medium' },
+      { id: 'u/outlet_near_limit/hot', time_ms: T + 3000, priority: 'high' },
+    ]);
   });
 
   it('come back from a file to the last key, shelves and service included', () => {
@@ -262,10 +281,9 @@ describe('what is told outside', () => {
     raise('front_spread', T);
     history.stop();
     const old = new SQLite(join(folder, 'history.sqlite'));
-    old.exec(`DROP TABLE rollup_10min; DROP TABLE rollup_2h; DROP TABLE rollup_1d; DROP TABLE rolled_up;
-      DROP TABLE tellings; UPDATE alarms SET alarm = json_remove(alarm, '$.told');
+    makeOlder(old, 'tellings');
+    old.exec(`UPDATE alarms SET alarm = json_remove(alarm, '$.told');
       INSERT INTO cursors VALUES ('events to r', 0), ('events to s', 40)`);
-    old.pragma('user_version = 4');
     old.close();
     const again = opened(undefined, folder);
     const [r, s] = ['r', 's'].map((name) => again.history.eventQueue(name));

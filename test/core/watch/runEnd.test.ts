@@ -124,6 +124,27 @@ describe('a discharge that runs to its end', () => {
     ]);
   });
 
+  it('that is found to end within five minutes is no alarm: nobody could act on it', () => {
+    // Found half a minute before a look, of some 61 minutes: that 4 are left, then that 12 are.
+    const short = (minutes: number) =>
+      run(4, [{ minutes: 179 }, { minutes, found_MWh: (minutes - 61) / 60 }]);
+    expect(short(4).short).toEqual([]);
+    const [raised] = short(12).events;
+    expect(raised).toMatchObject({ kind: 'outlet_near_limit', priority: 'high' });
+    expect(Date.parse(raised!.act_by!) - Date.parse(raised!.time)).toBeGreaterThanOrEqual(5 * MIN);
+    // One that stands by then goes on standing until the run is over.
+    const whole = run(6, [
+      { minutes: 120 },
+      { minutes: 179, found_MWh: -1 },
+      { minutes: 9, margin_K: 3 },
+      { minutes: 10, mode: 'stand' },
+    ]);
+    expect(whole.short.map((line) => line.split(' ')[2])).toEqual(['raised', 'returned']);
+    // An outlet past its limit asks for an end now.
+    const past = run(4, [{ minutes: 180 }, { minutes: 4, found_MWh: -0.93, margin_K: -6 }]);
+    expect(past.events[0]!.message).toContain('End the discharge or lower the power now');
+  });
+
   it('less than a quarter of an hour earlier, or still after the firm end, is none', () => {
     expect(run(2, [{ minutes: 30 }, { minutes: 90, found_MWh: -0.2 }]).short).toEqual([]);
     expect(run(20, [{ minutes: 30 }, { minutes: 1160, found_MWh: -0.3 }]).short).toEqual([]);
