@@ -9,15 +9,17 @@ import type { HealthPart, PlantService } from './adapters/http/service.js';
 import { Intake } from './adapters/mqtt/intake.js';
 import { readSource, type SiteSource } from './config/load.js';
 import type { SiteConfig } from './config/site.js';
+import type { WatchEvent } from './core/watch/event.js';
 import { AlarmPart, DEFAULT_ALARMS } from './daemon/alarmPart.js';
 import { catchUp } from './daemon/catchUp.js';
 import { type DaemonClock, SteadyClock, wallClock } from './daemon/clock.js';
 import { type Core, realCore } from './daemon/core.js';
 import { Counters } from './daemon/counters.js';
 import { DatabasePart } from './daemon/databasePart.js';
+import { Entering } from './daemon/entering.js';
 import { brokerHealth, storeHealth, unitHealth } from './daemon/health.js';
 import { Housekeeping } from './daemon/housekeeping.js';
-import { makeRunners } from './daemon/makeRunners.js';
+import { runnerMaker } from './daemon/makeRunners.js';
 import { MqttPart } from './daemon/mqttPart.js';
 import { Notices } from './daemon/notices.js';
 import { NotifyPart } from './daemon/notifyPart.js';
@@ -25,8 +27,10 @@ import { pageFolder } from './daemon/pageFolder.js';
 import { Pipeline } from './daemon/pipeline.js';
 import { DaemonService } from './daemon/plantService.js';
 import { Questions } from './daemon/questions.js';
+import { Rewinder } from './daemon/rewind/rewinder.js';
+import { rewindRules } from './daemon/rewind/rules.js';
 import { Speaker } from './daemon/speaker.js';
-import type { UnitRunner } from './daemon/unitRunner.js';
+import type { RunnerStep, UnitRunner } from './daemon/unitRunner.js';
 import type { Log } from './log.js';
 
 export type { PlantService } from './adapters/http/service.js';
@@ -85,6 +89,7 @@ class RockhourDaemon implements Daemon {
   private readonly questions: Questions;
   private readonly runners: ReadonlyMap<string, UnitRunner>;
   private readonly pipeline: Pipeline;
+  private readonly rewinder: Rewinder;
   private readonly intake: Intake;
   private readonly mqtt: MqttPart;
   private readonly alarms: AlarmPart;
@@ -116,18 +121,29 @@ class RockhourDaemon implements Daemon {
     this.journal = journal;
     this.history = history;
     this.questions = new Questions(core, sourceOf(options.configPath));
-    this.runners = makeRunners(site, core);
+    const make = runnerMaker(site, core);
+    this.runners = new Map(site.units.map((unit) => [unit.id, make(unit)]));
     const shortest_s = Math.min(...site.units.map((unit) => unit.scan_period_s));
     const poll_ms = Math.min(1000, Math.max(20, (shortest_s * 100) / clock.speed));
     const common = { journal, history, clock, counters, notices, log };
+    const rules = rewindRules(site);
+    const steady = new SteadyClock(clock, 4 * poll_ms * clock.speed);
+    const units = { ...common, runners: [...this.runners.values()], steady };
+    const tells = {
+      stepped: (runner: UnitRunner, step: RunnerStep) => this.speaker.stepped(runner, step),
+      event: (event: WatchEvent) => this.alarms.event(event),
+      alarmsMoved: (unit: string) => this.alarms.moved(unit),
+    };
+    const checkpoint_every_ms = site.store.checkpoint_every_s * 1000;
+    const entering = new Entering({ ...common, ...rules, ...tells, checkpoint_every_ms });
     this.pipeline = new Pipeline({
-      ...common,
-      runners: [...this.runners.values()],
-      steady: new SteadyClock(clock, 4 * poll_ms * clock.speed),
-      checkpoint_every_ms: site.store.checkpoint_every_s * 1000,
-      stepped: (runner, step) => this.speaker.stepped(runner, step),
-      event: (event) => this.alarms.event(event),
-      alarmsMoved: (unit) => this.alarms.moved(unit),
+      ...{ ...units, entering },
+      late: (runner, reading, isNew) => this.rewinder.note(runner, reading, isNew),
+    });
+    this.rewinder = new Rewinder({
+      ...{ ...units, ...tells, entering, rules, fresh: make },
+      backlog: () => this.pipeline.backlog,
+      isBusy: (runner) => this.pipeline.isBusy(runner),
     });
     this.alarms = new AlarmPart({
       ...common,
@@ -176,6 +192,7 @@ class RockhourDaemon implements Daemon {
       ...common,
       site,
       pipeline: this.pipeline,
+      rewinder: this.rewinder,
       poll_ms,
       forwarded: () => this.database?.cursor ?? Number.POSITIVE_INFINITY,
     });
@@ -247,6 +264,10 @@ class RockhourDaemon implements Daemon {
     await this.begin(
       () => catchUp(journal, this.intake, pipeline, this.log),
       () => pipeline.stop(),
+    );
+    await this.begin(
+      () => this.rewinder.start(),
+      () => this.rewinder.stop(),
     );
     await this.begin(
       () => this.alarms.start(),

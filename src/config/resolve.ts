@@ -24,6 +24,7 @@ export function resolveSite(site: SiteBlock, baseFolder: string, secrets: Secret
     sources: site.units.flatMap((unit) => sourcesOf(unit, mqtt.in_prefix)),
     scan_deadline_s: site.scan_deadline_s,
     clock_tolerance_s: site.clock_tolerance_s,
+    late: site.late,
     mqtt: {
       url: mqtt.url ?? null,
       embedded_host: mqtt.embedded_host,

@@ -112,6 +112,18 @@ export interface AlarmsConfig {
   readonly latching: readonly EventKind[];
 }
 
+/** What is done with readings that come when their scan is closed. */
+export interface LateConfig {
+  /** Older ones than this against the newest reading are not used [h]; 0 = none is. */
+  readonly rewind_h: number;
+  /** Spacing of the states that are kept to go back to [s]. */
+  readonly rewind_point_every_s: number;
+  /** They are taken in once none has come for this long [s], */
+  readonly quiet_s: number;
+  /** but at the latest after this [s]. */
+  readonly wait_most_s: number;
+}
+
 export interface NotifyConfig {
   readonly webhooks: readonly WebhookConfig[];
 }
@@ -128,6 +140,8 @@ export interface SiteConfig {
    * without it 300.
    */
   readonly clock_tolerance_s?: number;
+  /** Without it as `DEFAULT_LATE` has it. */
+  readonly late?: LateConfig;
   readonly mqtt: MqttConfig;
   readonly influx: InfluxConfig | null;
   /** Absent: shelved for 8 h at most, all in service, none latching. */

@@ -16,6 +16,17 @@ const OWN_COUNTS = [
   'scans_skipped',
   /** Scans on which the estimator failed; it went on from its last sound state. */
   'scan_failures',
+  /** Late readings that are in their scans since; whose scan has a value; that are too old to be used. */
+  'late_used',
+  'late_repeated',
+  'too_late',
+  /** Late readings that could not be noted or taken in; they are in the journal alone. */
+  'late_lost',
+  /** Times that scans were made again with late readings, such scans, estimates that they changed. */
+  'rewinds',
+  'scans_again',
+  'estimates_revised',
+  'rewind_failures',
   /** Indicators that began anew at a start: what was learned as healthy for them is lost. */
   'baselines_lost',
   /** Thermocouples of all scans by what became of them, and what they are together. */

@@ -6,12 +6,14 @@ import type { DaemonClock } from './clock.js';
 import type { Counters } from './counters.js';
 import type { Notices } from './notices.js';
 import type { Pipeline } from './pipeline.js';
+import type { Rewinder } from './rewind/rewinder.js';
 
 export interface HousekeepingOptions {
   readonly site: SiteConfig;
   readonly journal: Journal;
   readonly history: History;
   readonly pipeline: Pipeline;
+  readonly rewinder: Rewinder;
   readonly clock: DaemonClock;
   readonly counters: Counters;
   readonly notices: Notices;
@@ -61,7 +63,9 @@ export class Housekeeping {
   }
 
   private closeDue(): void {
-    if (this.mayClose) this.options.pipeline.closeDue();
+    if (!this.mayClose) return;
+    this.options.pipeline.closeDue();
+    this.options.rewinder.poll();
   }
 
   /** What an older version stored is rolled up beside the scans; then there is nothing for an hour. */
@@ -89,6 +93,7 @@ export class Housekeeping {
       const old = journal.seqBefore(now_ms - site.store.keep_readings_days * DAY_MS);
       const covered = history.checkpoints.coveredSeq(site.units.map((unit) => unit.id));
       journal.forget(Math.min(old, covered));
+      this.options.rewinder.forgetOld();
     } catch (thrown) {
       counters.add('history_failures');
       notices.warn('history_failures', reasonOf(thrown));

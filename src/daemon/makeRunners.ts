@@ -1,4 +1,5 @@
 import type { SiteConfig } from '../config/site.js';
+import type { UnitDefinition } from '../core/definitions.js';
 import type { Core } from './core.js';
 import { UnitRunner } from './unitRunner.js';
 
@@ -6,12 +7,19 @@ const CLOCK_TOLERANCE_S = 300;
 /** A longer gap is handed to the core in one, which bridges it itself. */
 const LONGEST_GAP_SCANS = 2000;
 
-/** A runner for each unit of the site, by its id. */
-export function makeRunners(site: SiteConfig, core: Core): ReadonlyMap<string, UnitRunner> {
+/** What makes a runner of a unit of the site without a past. */
+export type MakeRunner = (unit: UnitDefinition) => UnitRunner;
+
+export function runnerMaker(site: SiteConfig, core: Core): MakeRunner {
   const assembly = {
     deadline_ms: site.scan_deadline_s * 1000,
-    future_tolerance_ms: (site.clock_tolerance_s ?? CLOCK_TOLERANCE_S) * 1000,
+    future_tolerance_ms: futureTolerance(site),
     longest_gap_scans: LONGEST_GAP_SCANS,
   };
-  return new Map(site.units.map((unit) => [unit.id, new UnitRunner(unit, core, assembly)]));
+  return (unit) => new UnitRunner(unit, core, assembly);
+}
+
+/** A reading stamped further ahead of its arrival than this is not believed [ms]. */
+export function futureTolerance(site: SiteConfig): number {
+  return (site.clock_tolerance_s ?? CLOCK_TOLERANCE_S) * 1000;
 }

@@ -1,20 +1,18 @@
 import type { History } from '../adapters/history/history.js';
-import type { Journal, JournalEntry } from '../adapters/history/journal.js';
-import type { WatchEvent } from '../core/watch/event.js';
+import type { Journal, JournalEntry, ReadingEntry } from '../adapters/history/journal.js';
 import { reasonOf } from '../errors.js';
 import type { Log } from '../log.js';
 import type { DaemonClock, SteadyClock } from './clock.js';
 import type { Counters } from './counters.js';
+import type { Entering } from './entering.js';
 import type { Notices } from './notices.js';
 import { restoreRunner } from './restore.js';
-import type { RunnerStep, UnitRunner } from './unitRunner.js';
+import type { UnitRunner } from './unitRunner.js';
 
 /** Work in one go, after which messages and questions have their turn [ms]. */
 const SLICE_MS = 25;
 /** Journal entries read at a time. */
 const PAGE = 512;
-/** Events kept while the history cannot be written; what is beyond is counted as lost. */
-const MOST_UNSTORED = 10_000;
 /** After a failure to read the journal [ms]. */
 const RETRY_MS = 1000;
 
@@ -27,13 +25,9 @@ export interface PipelineOptions {
   readonly counters: Counters;
   readonly notices: Notices;
   readonly log: Log;
-  readonly checkpoint_every_ms: number;
-  /** A step of a unit whose estimate is new. */
-  stepped(runner: UnitRunner, step: RunnerStep): void;
-  /** An event that is new. */
-  event(event: WatchEvent): void;
-  /** Alarms of a unit have changed without an event: a rule, or the time. */
-  alarmsMoved(unit: string): void;
+  readonly entering: Entering;
+  /** A reading came when its scan was closed. */
+  late(runner: UnitRunner, reading: ReadingEntry, isNew: boolean): void;
 }
 
 /**
@@ -51,11 +45,7 @@ export class Pipeline {
   private running = false;
   private liveFrom = Number.POSITIVE_INFINITY;
   private idle: (() => void)[] = [];
-  private readonly nextCheckpoint = new Map<string, number>();
   private readonly failing = new Map<string, string>();
-  private storeTrouble: string | null = null;
-  /** Events told while the history could not be written, in their order. */
-  private unstored: WatchEvent[] = [];
 
   constructor(private readonly options: PipelineOptions) {}
 
@@ -82,7 +72,7 @@ export class Pipeline {
     this.scheduled = null;
     if (this.retry) clearTimeout(this.retry);
     this.retry = null;
-    for (const runner of this.options.runners) this.save(runner, true);
+    for (const runner of this.options.runners) this.options.entering.save(runner, true);
     for (const resolve of this.idle.splice(0)) resolve();
   }
 
@@ -103,7 +93,7 @@ export class Pipeline {
       try {
         journal.appendClose(runner.unit.id, index, Math.floor(clock.now()));
       } catch (thrown) {
-        this.storeFailed('journal_failures', thrown);
+        this.options.entering.storeFailed('journal_failures', thrown);
         return;
       }
     }
@@ -115,6 +105,11 @@ export class Pipeline {
     return this.options.journal.lastSeq - this.seq + this.busy.length;
   }
 
+  /** Whether a unit may have closed scans that are not worked off. */
+  isBusy(runner: UnitRunner): boolean {
+    return this.busy.includes(runner);
+  }
+
   /** Why a unit's last scan could not be taken in, by unit. */
   get failures(): ReadonlyMap<string, string> {
     return this.failing;
@@ -122,7 +117,7 @@ export class Pipeline {
 
   /** Why the journal or the history could not be read or written the last time, null if they could. */
   get trouble(): string | null {
-    return this.storeTrouble;
+    return this.options.entering.trouble;
   }
 
   /** Resolves when everything in the journal is in the estimates. */
@@ -174,6 +169,8 @@ export class Pipeline {
         notices.warn(fate, describe(entry, fate));
       }
     }
+    if (runner && fate === 'late' && entry.kind === 'reading')
+      this.options.late(runner, entry, isLive);
     if (runner) this.busy.push(runner);
     return true;
   }
@@ -182,7 +179,7 @@ export class Pipeline {
     try {
       return this.options.journal.read(this.seq, PAGE);
     } catch (thrown) {
-      this.storeFailed('journal_failures', thrown);
+      this.options.entering.storeFailed('journal_failures', thrown);
       return [];
     }
   }
@@ -190,7 +187,7 @@ export class Pipeline {
   /** One scan of a unit that has closed ones, or the end of them. */
   private stepBusy(): void {
     const runner = this.busy.at(-1)!;
-    const { counters } = this.options;
+    const { counters, entering } = this.options;
     const skipped = runner.skippedScans;
     try {
       const step = runner.step();
@@ -204,95 +201,21 @@ export class Pipeline {
       counters.add('scans_skipped', runner.skippedScans - skipped);
       if (step.step.counts) counters.addScan(step.step.counts);
       this.failing.delete(runner.unit.id);
-      this.enter(runner, step);
+      entering.enter(runner, step);
     } catch (thrown) {
       this.failed(runner, thrown);
     }
   }
 
-  private enter(runner: UnitRunner, step: RunnerStep): void {
-    const { history, counters, stepped, event, alarmsMoved } = this.options;
-    const { estimate, profile, events, cycle, watch } = step.step;
-    const time_ms = Date.parse(estimate.time);
-    try {
-      const news = history.write(() => {
-        const isNew = history.estimates.add(runner.unit, estimate, step.measured);
-        if (profile) history.profiles.add(profile);
-        if (cycle) history.cycles.add(cycle);
-        if (watch) history.watch.add(watch);
-        // A scan that is known, as in a replay after a restart, has moved its alarms already.
-        const moved = isNew && history.alarms.scan(runner.unit.id, estimate.mode, time_ms);
-        const late = this.unstored.filter((one) => history.events.add(one));
-        return { isNew, moved, late, events: events.filter((one) => history.events.add(one)) };
-      });
-      this.storeTrouble = null;
-      this.unstored = [];
-      for (const unit of new Set(news.late.map((one) => one.unit))) alarmsMoved(unit);
-      if (news.isNew) stepped(runner, step);
-      for (const one of news.events) event(one);
-      if (news.moved) alarmsMoved(runner.unit.id);
-    } catch (thrown) {
-      // What cannot be stored is said all the same, and stored with the next scan that can be.
-      this.storeFailed('history_failures', thrown);
-      this.unstored.push(...events);
-      counters.add('events_lost', this.unstored.splice(MOST_UNSTORED).length);
-      stepped(runner, step);
-      for (const one of events) event(one);
-    }
-    this.checkpointIfDue(runner, time_ms);
-  }
-
-  private checkpointIfDue(runner: UnitRunner, time_ms: number): void {
-    const due = this.nextCheckpoint.get(runner.unit.id);
-    if (due !== undefined && time_ms < due && !runner.unsaved) return;
-    this.nextCheckpoint.set(runner.unit.id, time_ms + this.options.checkpoint_every_ms);
-    // The first of this process would only repeat the one that it was restored from.
-    if (due !== undefined || runner.unsaved) this.save(runner);
-  }
-
-  /** @param last with the newest profile, which is shown until the next start has its own */
-  private save(runner: UnitRunner, last = false): void {
-    const { history } = this.options;
-    const checkpoint = runner.checkpoint();
-    if (!checkpoint) return;
-    try {
-      history.write(() => {
-        history.checkpoints.add(runner.unit, checkpoint);
-        runner.unsaved = false;
-        if (last && runner.view.profile) history.profiles.add(runner.view.profile, true);
-      });
-    } catch (thrown) {
-      this.storeFailed('history_failures', thrown);
-    }
-  }
-
-  /** `KIND/SUBJECT` of what the unit's estimator has raised. */
-  private standingOf(unit: string): ReadonlySet<string> {
-    try {
-      const events = this.options.history.alarms.active(unit);
-      const own = events.filter(({ kind }) => kind !== 'database_unreachable');
-      return new Set(own.map(({ kind, subject }) => `${kind}/${subject}`));
-    } catch (thrown) {
-      this.storeFailed('history_failures', thrown);
-      return new Set();
-    }
-  }
-
-  private storeFailed(kind: 'journal_failures' | 'history_failures', thrown: unknown): void {
-    this.storeTrouble = reasonOf(thrown);
-    this.options.counters.add(kind);
-    this.options.notices.warn(kind, this.storeTrouble);
-  }
-
   private failed(runner: UnitRunner, thrown: unknown): void {
-    const { counters, notices, history } = this.options;
+    const { counters, notices, history, entering } = this.options;
     counters.add('scan_failures');
     this.failing.set(runner.unit.id, reasonOf(thrown));
     notices.warn(
       `scan_failures ${runner.unit.id}`,
       `unit ${runner.unit.id}: a scan could not be taken in: ${reasonOf(thrown)}`,
     );
-    const standing = this.standingOf(runner.unit.id);
+    const standing = entering.standingOf(runner.unit.id);
     try {
       runner.recover(history.checkpoints.list(runner.unit)[0], standing);
     } catch {

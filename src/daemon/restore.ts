@@ -33,9 +33,14 @@ export function restoreRunner(runner: UnitRunner, parts: RestoreParts): void {
   const { history, log, journal, clock, steady } = parts;
   const { id } = runner.unit;
   const usable = ({ journal_seq }: StoredCheckpoint) => journal_seq <= journal.lastSeq;
-  for (const checkpoint of history.checkpoints.list(runner.unit).filter(usable)) {
+  const saved = [
+    ...history.checkpoints.list(runner.unit),
+    ...history.rewindPoints.before(runner.unit, Number.MAX_SAFE_INTEGER),
+  ];
+  for (const checkpoint of saved.filter(usable)) {
     try {
-      tellLost(runner, runner.restore(checkpoint, steady.now()), parts);
+      tellLost(runner, runner.restore(checkpoint, steady.now(), standingOf(id, history)), parts);
+      history.late.waitAgain(id, checkpoint.journal_seq);
     } catch (thrown) {
       log.warn({ unit: id }, `a checkpoint cannot be used: ${reasonOf(thrown)}`);
       continue;
@@ -58,6 +63,7 @@ export function restoreRunner(runner: UnitRunner, parts: RestoreParts): void {
   }
   const isEmpty = journal.lastSeq === 0;
   runner.startAt(isEmpty ? 0 : journal.seqBefore(clock.now() - AFRESH_MS));
+  history.late.waitAgain(id, runner.seq);
   if (isEmpty || !history.checkpoints.hasAny(id)) return;
   log.warn({ unit: id }, 'no checkpoint fits: starts afresh from the last day of the journal');
   tellLost(runner, [ALL], parts);
@@ -83,7 +89,7 @@ function takeOver(runner: UnitRunner, checkpoint: StoredCheckpoint, parts: Resto
   const until_ms = Math.min(clock.now(), checkpoint.time_ms);
   const before = journal.seqBefore(until_ms - (anew.length > 0 ? AFRESH_MS : SCANS_MS));
   const from = Math.min(before, checkpoint.journal_seq);
-  runner.takeOverLater(checkpoint, from, new Set(kept.map(keyOf)));
+  runner.takeOverLater(checkpoint, from, kept);
   const beds = anew.length === 0 ? 'all beds go on' : `begun anew: bed of ${anew.join(', ')}`;
   log.warn({ unit: id }, `the unit's definition has changed; ${beds}`);
   tellLost(runner, lost, parts);

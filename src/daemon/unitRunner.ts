@@ -1,5 +1,5 @@
 import type { Checkpoint, StoredCheckpoint } from '../adapters/history/checkpoints.js';
-import type { JournalEntry } from '../adapters/history/journal.js';
+import type { JournalEntry, ReadingEntry } from '../adapters/history/journal.js';
 import type { Measured } from '../adapters/history/series.js';
 import type { UnitDefinition } from '../core/definitions.js';
 import type { DispatchAnswer, Estimate, ProfileView } from '../core/estimate.js';
@@ -22,6 +22,7 @@ import { shapeOf, type UnitShape } from '../core/unitShape.js';
 import { alignWatch } from '../core/watch/align.js';
 import { lostToVersion } from '../core/watch/carry.js';
 import type { WatchView } from '../core/watch/causes.js';
+import type { WatchEvent } from '../core/watch/event.js';
 import type { Core } from './core.js';
 
 /** What a checkpoint holds: estimator and open scans, as of one journal entry. */
@@ -30,15 +31,19 @@ interface RunnerImage {
   readonly assembler: AssemblerSnapshot;
   /** Of the definition it was saved under; absent in one saved before it was told. */
   readonly shape?: UnitShape;
+  /** What this state has raised and not returned, as it was raised; absent as above. */
+  readonly standing?: readonly WatchEvent[];
 }
 
 /** A state saved under another definition, to be taken over where the journal has come to its time. */
 interface Awaited {
-  readonly image: Required<RunnerImage>;
+  readonly image: DescribedImage;
   readonly time_ms: number;
-  /** `KIND/SUBJECT` of what is told as raised. */
-  readonly standing: ReadonlySet<string>;
+  /** What is told as raised. */
+  readonly standing: readonly WatchEvent[];
 }
+
+type DescribedImage = RunnerImage & { readonly shape: UnitShape };
 
 export interface RunnerStep {
   readonly closed: ClosedScan;
@@ -87,6 +92,8 @@ export class UnitRunner {
   unsaved = false;
   /** `INDICATOR/SUBJECT` of what was learned as healthy and lost at this start. */
   lost: readonly string[] = [];
+  /** What the state has raised and not returned, by id, as it was raised. */
+  private raised = new Map<string, WatchEvent>();
 
   constructor(
     readonly unit: UnitDefinition,
@@ -113,6 +120,34 @@ export class UnitRunner {
     return this.assembler.skippedScans;
   }
 
+  /** Has taken a scan in, and waits for no saved state to be taken over. */
+  get isSettled(): boolean {
+    return this.state.time_ms !== null && this.awaited === null;
+  }
+
+  /** What the state has raised and not returned, as it was raised. */
+  get standing(): readonly WatchEvent[] {
+    return [...this.raised.values()];
+  }
+
+  /** Index of the oldest scan that readings can still go into; null before the first reading. */
+  get openFrom(): number | null {
+    return this.assembler.openFrom;
+  }
+
+  /**
+   * Index from which on no scan has a reading yet; null before the first reading. What a late reading
+   * goes into has to be made from here on: an open scan only knows the newest of each channel.
+   */
+  get untouchedFrom(): number | null {
+    return this.assembler.untouchedFrom;
+  }
+
+  /** Index of a channel in the unit's; undefined for another's. */
+  channelOf(id: string): number | undefined {
+    return this.channelIndex.get(id);
+  }
+
   /** Starts without a past, behind this journal entry. */
   startAt(seq: number): void {
     this.taken_seq = seq;
@@ -120,15 +155,21 @@ export class UnitRunner {
 
   /**
    * Throws where the checkpoint is damaged or does not fit this unit or this build.
+   * @param standing what is told as raised, where the checkpoint does not say it
    * @returns the indicators that this build begins anew
    */
-  restore(checkpoint: StoredCheckpoint, steady_ms: number): string[] {
+  restore(
+    checkpoint: StoredCheckpoint,
+    steady_ms: number,
+    standing: readonly WatchEvent[] = [],
+  ): string[] {
     const image = checkpoint.load() as RunnerImage;
     const assembler = new Assembler(this.unit, this.options, this.finish);
     assembler.restore(image.assembler);
     this.state = this.core.restoreUnit(this.unit, image.unit);
     this.assembler = assembler;
     this.taken_seq = checkpoint.journal_seq;
+    this.raised = byId(image.standing ?? standing);
     // A plant that stays silent from here on still sees its scans close.
     if (assembler.newest !== null) this.plantClock.observe(assembler.newest, steady_ms);
     // A core of a test may watch nothing.
@@ -152,7 +193,7 @@ export class UnitRunner {
   takeOverLater(
     checkpoint: StoredCheckpoint,
     from_seq: number,
-    standing: ReadonlySet<string>,
+    standing: readonly WatchEvent[],
   ): void {
     const image = describedImage(checkpoint);
     this.awaited = { image, time_ms: checkpoint.time_ms, standing };
@@ -166,6 +207,7 @@ export class UnitRunner {
       unit: this.core.saveUnit(this.state),
       assembler: this.assembler.save(),
       shape: shapeOf(this.unit),
+      standing: this.standing,
     };
     return { time_ms: this.state.time_ms, journal_seq: this.taken_seq, image };
   }
@@ -193,25 +235,41 @@ export class UnitRunner {
     return fate;
   }
 
+  /** Takes a reading in that came late, in its place by source time; its number is behind those taken. */
+  takeLate(entry: ReadingEntry): void {
+    const channel = this.channelIndex.get(entry.channel);
+    if (channel === undefined) return;
+    const { time_ms, arrival_ms, value } = entry;
+    this.assembler.add({ channel, time_ms, arrival_ms, value });
+  }
+
   /** Index up to which scans are past their deadline, null where none is. */
   due(steady_ms: number): number | null {
     const plant_ms = this.plantClock.at(steady_ms);
     return plant_ms === null ? null : this.assembler.due(plant_ms);
   }
 
-  /** The next closed scan through the core; null where none is closed. Throws what the core throws. */
-  step(): RunnerStep | null {
+  /**
+   * The next closed scan through the core; null where none is closed. Throws what the core throws.
+   *
+   * @param withHours hours where the unit's clock strikes; they are no part of the state
+   */
+  step(withHours = true): RunnerStep | null {
     const closed = this.assembler.take();
     if (!closed) return null;
     const { scan } = closed;
     if (this.awaited !== null && scan.time_ms > this.awaited.time_ms) this.takeOver(this.awaited);
-    const isDue = this.core.hoursDue(this.unit, this.state.time_ms, scan.time_ms);
+    const isDue = withHours && this.core.hoursDue(this.unit, this.state.time_ms, scan.time_ms);
     const ask = { hours_at_W: isDue ? this.unit.hours_at_W : [], profile: true };
     const step = this.core.advance(this.unit, this.state, scan, ask);
     const { estimate, profile } = step;
     if (this.awaited !== null) {
       const measured = measuredIn(this.unit, scan, estimate);
       return { closed, step: { estimate, profile, events: [] }, measured };
+    }
+    for (const event of step.events) {
+      if (event.transition === 'raised') this.raised.set(event.id, event);
+      else this.raised.delete(event.id);
     }
     const measured = measuredIn(this.unit, scan, estimate);
     Object.assign(this.view, { estimate, profile, measured, counts: step.counts ?? null });
@@ -223,9 +281,27 @@ export class UnitRunner {
   private takeOver({ image, standing }: Awaited): void {
     this.awaited = null;
     const { state } = this.core.carryUnit(this.unit, this.state, image.unit, image.shape);
-    alignWatch(state.watch, standing);
+    alignWatch(state.watch, new Set(standing.map(({ kind, subject }) => `${kind}/${subject}`)));
     this.state = state;
+    this.raised = byId(standing);
     this.unsaved = true;
+  }
+
+  /**
+   * Goes on from the state of another runner of this unit, which has the same entries and those that
+   * came late. What was last told of hours and headroom stays.
+   */
+  adopt(other: UnitRunner): void {
+    if (other.taken_seq !== this.taken_seq || this.awaited !== null) {
+      throw new RangeError(
+        `other must have entries up to ${this.taken_seq}, got ${other.taken_seq}`,
+      );
+    }
+    this.assembler = other.assembler;
+    this.state = other.state;
+    this.raised = other.raised;
+    const { estimate, profile, measured, counts, watch } = other.view;
+    Object.assign(this.view, { estimate, profile, measured, counts, watch });
   }
 
   /** After a failure of the core: back to a sound state, or to none; time passes on from there. */
@@ -240,7 +316,11 @@ export class UnitRunner {
   }
 }
 
-function describedImage(checkpoint: StoredCheckpoint): Required<RunnerImage> {
+function byId(events: readonly WatchEvent[]): Map<string, WatchEvent> {
+  return new Map(events.map((event) => [event.id, event]));
+}
+
+function describedImage(checkpoint: StoredCheckpoint): DescribedImage {
   const { shape, ...image } = checkpoint.load() as RunnerImage;
   if (shape === undefined) throw new RangeError('it does not tell its definition');
   return { ...image, shape };

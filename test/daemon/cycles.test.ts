@@ -124,6 +124,7 @@ describe('the cycle log of a daemon', () => {
 
     // Without any checkpoint: all of the journal again, and nothing is entered twice.
     stored(site, 'DELETE FROM checkpoints');
+    stored(site, 'DELETE FROM rewind_points');
     const afresh = makeDaemon(site, { core: cyclingCore });
     await afresh.start();
     await afresh.caughtUp();

@@ -57,6 +57,11 @@ export class Checkpoints {
     })();
   }
 
+  /** Deletes all of a unit: they are of a state that was put aside. */
+  clear(unit: string): void {
+    this.database.prepare('DELETE FROM checkpoints WHERE unit = ?').run(unit);
+  }
+
   /** Checkpoints of a unit, newest first, that were saved under a definition of the same shape. */
   list(unit: UnitDefinition): StoredCheckpoint[] {
     return this.select(unit, 'IN');

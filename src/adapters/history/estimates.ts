@@ -19,7 +19,13 @@ export interface EstimateThen extends Measured {
   readonly estimate: Estimate;
 }
 
-/** Estimates and dispatch answers by unit and time. A time once written stays as it is. */
+/** A span of source time [ms]; `end_ms` is not in it. */
+export interface Span {
+  readonly from_ms: number;
+  readonly end_ms: number;
+}
+
+/** Estimates and dispatch answers by unit and time. A time once written stays, but for late readings. */
 export class Estimates {
   constructor(
     private readonly database: Database,
@@ -31,16 +37,65 @@ export class Estimates {
   /** @returns false where the unit already has an estimate of this time */
   add(unit: UnitDefinition, estimate: Estimate, measured: Measured): boolean {
     const time_ms = Date.parse(estimate.time);
-    const values = seriesValues(unit, estimate, measured);
-    const layout = this.layouts.numberFor(unit);
-    const isNew = this.insert(
-      'INSERT OR IGNORE INTO estimates (seq, unit, time, json, layout, series) VALUES (?, ?, ?, ?, ?, ?)',
-      ...[unit.id, time_ms, JSON.stringify(estimate), layout],
-      Buffer.from(values.buffer),
-    );
+    const { isNew, layout, values } = this.store(unit, estimate, measured);
     if (isNew) this.rollups.added(unit.id, layout, time_ms, values);
     if (estimate.dispatch) this.addDispatch(unit.id, time_ms, estimate.dispatch);
     return isNew;
+  }
+
+  /**
+   * Puts an estimate that was made again in the place of those of its scan. What was told of hours then
+   * stays as it was told. Roll-ups are to be made anew afterwards.
+   *
+   * @param scan the time that no other scan has; the estimate's time lies in it
+   * @param resend also where nothing has changed, for the time-series database
+   * @returns whether anything has changed; then it has the next revision
+   */
+  revise(
+    unit: UnitDefinition,
+    estimate: Estimate,
+    measured: Measured,
+    scan: Span,
+    resend: boolean,
+  ): boolean {
+    const { again, isSame, isFirst } = this.heldAgainst(unit, estimate, scan);
+    if (isSame && !resend) return false;
+    this.database
+      .prepare('DELETE FROM estimates WHERE unit = ? AND time >= ? AND time < ?')
+      .run(unit.id, scan.from_ms, scan.end_ms);
+    const revision = again.revision + (isSame || isFirst ? 0 : 1);
+    this.store(unit, { ...again, revision }, measured);
+    return !isSame;
+  }
+
+  /** Whether an estimate that was made again is another than that which its scan has. */
+  differs(unit: UnitDefinition, estimate: Estimate, scan: Span): boolean {
+    return !this.heldAgainst(unit, estimate, scan).isSame;
+  }
+
+  private heldAgainst(unit: UnitDefinition, estimate: Estimate, { from_ms, end_ms }: Span) {
+    const texts = this.database
+      .prepare('SELECT json FROM estimates WHERE unit = ? AND time >= ? AND time < ?')
+      .pluck()
+      .all(unit.id, from_ms, end_ms) as string[];
+    const former = texts.map((json) => JSON.parse(json) as Estimate);
+    const told = former.find(({ dispatch }) => dispatch !== undefined)?.dispatch;
+    const revision = Math.max(0, ...former.map((one) => one.revision));
+    const again: Estimate = { ...estimate, revision, ...(told ? { dispatch: told } : {}) };
+    const isSame = texts.length === 1 && texts[0] === JSON.stringify(again);
+    return { again, isSame, isFirst: texts.length === 0 };
+  }
+
+  /** The greatest revision in a span of time; 0 where it has no estimate. */
+  newestRevision(unit: string, { from_ms, end_ms }: Span): number {
+    const revision = this.database
+      .prepare(
+        `SELECT max(json_extract(json, '$.revision')) FROM estimates
+         WHERE unit = ? AND time >= ? AND time < ?`,
+      )
+      .pluck()
+      .get(unit, from_ms, end_ms) as number | null;
+    return revision ?? 0;
   }
 
   /** @returns false where the unit already has answers of this time */
@@ -164,6 +219,17 @@ export class Estimates {
       .prepare(`SELECT time, json FROM ${table} WHERE unit = ? ORDER BY time DESC LIMIT 1`)
       .get(unit) as { time: number; json: string } | undefined;
     return row ? { time: row.time, content: JSON.parse(row.json) as T } : null;
+  }
+
+  private store(unit: UnitDefinition, estimate: Estimate, measured: Measured) {
+    const values = seriesValues(unit, estimate, measured);
+    const layout = this.layouts.numberFor(unit);
+    const isNew = this.insert(
+      'INSERT OR IGNORE INTO estimates (seq, unit, time, json, layout, series) VALUES (?, ?, ?, ?, ?, ?)',
+      ...[unit.id, Date.parse(estimate.time), JSON.stringify(estimate), layout],
+      Buffer.from(values.buffer),
+    );
+    return { isNew, layout, values };
   }
 
   private insert(sql: string, ...values: unknown[]): boolean {

@@ -1,4 +1,5 @@
 import type { StoreConfig } from '../../config/site.js';
+import type { UnitDefinition } from '../../core/definitions.js';
 import { type AlarmRules, Alarms } from './alarms.js';
 import { Checkpoints } from './checkpoints.js';
 import { Cycles } from './cycles.js';
@@ -6,11 +7,15 @@ import { type Database, openDatabase, openToRead, storeFailure } from './databas
 import { Estimates } from './estimates.js';
 import { EventQueue } from './eventQueue.js';
 import { Events } from './events.js';
+import { LateReadings } from './lateReadings.js';
 import { Layouts } from './layouts.js';
 import { Offers } from './offers.js';
 import { Outbox } from './outbox.js';
+import { Past } from './past.js';
 import { Profiles } from './profiles.js';
 import { applyRetention, type RetentionCounts } from './retention.js';
+import { RewindPoints } from './rewindPoints.js';
+import { Rewinds } from './rewinds.js';
 import { Rollups } from './rollups.js';
 import { HISTORY_SCHEMA } from './schema.js';
 import { Sequence } from './sequence.js';
@@ -18,7 +23,7 @@ import { WatchViews } from './watchViews.js';
 
 /**
  * The local history: one SQLite file with estimates, dispatch answers, offers, profiles, events,
- * alarms with every transition, checkpoints and the forwarder's cursor. A power cut may undo the last
+ * alarms with every transition, checkpoints, late readings and the forwarder's cursor. A power cut may undo the last
  * moments of it, checkpoints included, as a whole: the journal, which is synced, makes them again.
  */
 export class History {
@@ -34,6 +39,9 @@ export class History {
     readonly offers: Offers;
     readonly cycles: Cycles;
     readonly watch: WatchViews;
+    readonly rewindPoints: RewindPoints;
+    readonly late: LateReadings;
+    readonly rewinds: Rewinds;
     readonly sequence: Sequence;
   } | null = null;
 
@@ -71,6 +79,9 @@ export class History {
       offers: new Offers(database),
       cycles: new Cycles(database, sequence),
       watch: new WatchViews(database),
+      rewindPoints: new RewindPoints(database),
+      late: new LateReadings(database),
+      rewinds: new Rewinds(database, sequence),
       sequence,
     };
   }
@@ -106,6 +117,21 @@ export class History {
   }
   get watch(): WatchViews {
     return this.parts.watch;
+  }
+
+  get rewindPoints(): RewindPoints {
+    return this.parts.rewindPoints;
+  }
+  get late(): LateReadings {
+    return this.parts.late;
+  }
+  get rewinds(): Rewinds {
+    return this.parts.rewinds;
+  }
+
+  /** For what a rewind makes again of a unit. */
+  past(unit: UnitDefinition, from_ms: number): Past {
+    return new Past(this.parts, unit, from_ms);
   }
 
   /** What is told outside, for a receiver that keeps its own place in it. */

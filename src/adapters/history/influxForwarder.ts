@@ -1,3 +1,5 @@
+import { request as ask, type IncomingMessage } from 'node:http';
+import { request as askSecurely, type RequestOptions } from 'node:https';
 import { InfluxDB, type IPoint, type IPoolOptions } from 'influx';
 import type { InfluxConfig } from '../../config/site.js';
 import { reasonOf, withoutCredentials } from '../../errors.js';
@@ -109,7 +111,7 @@ export class InfluxForwarder {
     const items = outbox.read(ITEMS);
     if (items.length === 0) {
       // With nothing to write an outage would go unseen, and a first start unproven.
-      if (!this.hasWritten || this.reason !== null) await ping(influx);
+      if (!this.hasWritten || this.reason !== null) await ping(this.options.config);
       return false;
     }
     let points: IPoint[] = [];
@@ -177,9 +179,25 @@ export class InfluxForwarder {
   }
 }
 
-async function ping(influx: InfluxDB): Promise<void> {
-  const [host] = await influx.ping(REQUEST_TIMEOUT_MS);
-  if (!host?.online) throw new Error('no answer to a ping');
+/** The client's own ping says only that there was no answer, not why. */
+function ping(config: InfluxConfig): Promise<void> {
+  const url = new URL('ping', config.url.replace(/\/?$/, '/'));
+  const options = { timeout: REQUEST_TIMEOUT_MS, agent: false } as const;
+  return new Promise((resolve, reject) => {
+    const answered = (response: IncomingMessage) => {
+      response.resume();
+      const status = response.statusCode ?? 0;
+      if (status < 300) resolve();
+      else reject(new Error(`a ping was answered with ${status}`));
+    };
+    const asked =
+      url.protocol === 'https:'
+        ? askSecurely(url, { ...options, ...tlsOptions(config) }, answered)
+        : ask(url, options, answered);
+    asked.on('timeout', () => asked.destroy(new Error('no answer to a ping')));
+    asked.on('error', reject);
+    asked.end();
+  });
 }
 
 function makeClient(config: InfluxConfig): InfluxDB {
@@ -197,6 +215,7 @@ function makeClient(config: InfluxConfig): InfluxDB {
         host: url.hostname,
         port: Number(url.port || (isSecure ? 443 : 80)),
         protocol: isSecure ? 'https' : 'http',
+        ...(isSecure ? { options: tlsOptions(config) } : {}),
         ...(url.pathname === '/' ? {} : { path: url.pathname }),
       },
     ],
@@ -204,6 +223,17 @@ function makeClient(config: InfluxConfig): InfluxDB {
     ...(config.password === null ? {} : { password: config.password }),
     pool,
   });
+}
+
+/** A certificate is always checked; nothing older than TLS 1.2 is spoken. */
+function tlsOptions({ tls }: InfluxConfig): RequestOptions {
+  const { ca = null, server_name: servername = null } = tls ?? {};
+  return {
+    rejectUnauthorized: true,
+    minVersion: 'TLSv1.2',
+    ...(ca === null ? {} : { ca }),
+    ...(servername === null ? {} : { servername }),
+  };
 }
 
 /** What InfluxDB said, in one line: its client puts a status line before the JSON of the answer. */

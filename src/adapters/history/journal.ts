@@ -16,8 +16,10 @@ export interface JournalReading {
   readonly quality: ReadingQuality;
 }
 
+export type ReadingEntry = { readonly kind: 'reading'; readonly seq: number } & JournalReading;
+
 export type JournalEntry =
-  | ({ readonly kind: 'reading'; readonly seq: number } & JournalReading)
+  | ReadingEntry
   /** All scans of the unit up to this index were closed here. */
   | {
       readonly kind: 'close';
@@ -59,6 +61,7 @@ export class Journal {
   private database: Database | null = null;
   private insert!: Statement;
   private select!: Statement;
+  private selectUnit!: Statement;
   private last = 0;
   private readonly numbers = new Map<string, number>();
   private readonly names = new Map<number, { unit: string; channel: string }>();
@@ -73,6 +76,11 @@ export class Journal {
       'INSERT INTO entries (seq, source, time, arrival, value, quality) VALUES (?, ?, ?, ?, ?, ?)',
     );
     this.select = database.prepare('SELECT * FROM entries WHERE seq > ? ORDER BY seq LIMIT ?');
+    // The plus keeps the walk to the numbers' own order.
+    this.selectUnit = database.prepare(
+      `SELECT * FROM entries WHERE seq > ? AND seq <= ?
+       AND +source IN (SELECT no FROM sources WHERE unit = ?) ORDER BY seq`,
+    );
     const sources = database.prepare('SELECT no, unit, channel FROM sources').all();
     for (const row of sources as { no: number; unit: string; channel: string }[]) {
       this.numbers.set(key(row.unit, row.channel), row.no);
@@ -125,6 +133,31 @@ export class Journal {
     } catch (thrown) {
       throw storeFailure(`reading the journal ${this.file}`, thrown);
     }
+  }
+
+  /**
+   * Entries of one unit behind `seq` and up to `through_seq`, oldest first, of a piece of the journal.
+   *
+   * @returns them, and the number up to which the journal was looked through
+   */
+  readUnit(
+    unit: string,
+    seq: number,
+    through_seq: number,
+    most: number,
+  ): { entries: JournalEntry[]; seq: number } {
+    try {
+      const end = Math.min(through_seq, seq + most);
+      const rows = this.selectUnit.all(seq, end, unit) as Row[];
+      return { entries: rows.map((row) => this.entry(row)), seq: end };
+    } catch (thrown) {
+      throw storeFailure(`reading the journal ${this.file}`, thrown);
+    }
+  }
+
+  /** One entry; undefined where it is no more. */
+  at(seq: number): JournalEntry | undefined {
+    return this.read(seq - 1, 1).find((entry) => entry.seq === seq);
   }
 
   /** Number of the last entry that arrived before this time, 0 where there is none. */

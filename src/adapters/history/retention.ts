@@ -40,7 +40,8 @@ export function applyRetention(
       .pluck()
       .get(end, limit) as number;
     let estimates = remove(database, 'estimates', end);
-    for (const table of ['dispatch', 'profiles', 'watch']) remove(database, table, end);
+    for (const table of ['dispatch', 'profiles', 'watch', 'rewinds', 'withdrawals'])
+      remove(database, table, end);
     const offers = remove(database, 'offers', end) + removeSurplusOffers(database);
     const events = remove(database, 'events', end);
     const cycles = remove(database, 'cycles', end);

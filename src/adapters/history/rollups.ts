@@ -77,6 +77,23 @@ export class Rollups {
     return false;
   }
 
+  /** Rolls up a span again in which rows were rewritten, as far as it is rolled up; none may be thinned. */
+  redo(unit: string, from_ms: number, end_ms: number): void {
+    const rolled = this.rolled(unit);
+    if (rolled === null) return;
+    const start = Math.max(from_ms, rolled.from);
+    LEVELS_MS.forEach((width_ms, level) => {
+      const first = floorTo(start, width_ms);
+      const last = floorTo(Math.min(ceilTo(end_ms, width_ms), rolled.to), width_ms);
+      if (first >= last) return;
+      // Rows of a former layout may have gone.
+      this.database
+        .prepare(`DELETE FROM ${TABLES[level]} WHERE unit = ? AND time >= ? AND time < ?`)
+        .run(unit, first, last);
+      this.rollLevel(unit, level, first, last);
+    });
+  }
+
   /** Units that have estimates. */
   units(): string[] {
     // One look-up per unit: DISTINCT would walk through every row.
@@ -167,12 +184,16 @@ export class Rollups {
   private roll(unit: string, start: number, end: number): void {
     LEVELS_MS.forEach((width_ms, level) => {
       const [first, last] = [floorTo(start, width_ms), floorTo(end, width_ms)];
-      if (first >= last) return;
-      const parts =
-        level === 0 ? this.rows(unit, first, last) : this.stretches(unit, first, last, level - 1);
-      // Written once all are read: no statement is open on the table meanwhile.
-      for (const one of [...gather(parts, width_ms)]) this.enter(unit, level, one);
+      if (first < last) this.rollLevel(unit, level, first, last);
     });
+  }
+
+  /** Rolls up the stretches of one level in a span of whole stretches. */
+  private rollLevel(unit: string, level: number, first: number, last: number): void {
+    const parts =
+      level === 0 ? this.rows(unit, first, last) : this.stretches(unit, first, last, level - 1);
+    // Written once all are read: no statement is open on the table meanwhile.
+    for (const one of [...gather(parts, LEVELS_MS[level]!)]) this.enter(unit, level, one);
   }
 
   private late(

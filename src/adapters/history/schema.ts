@@ -100,4 +100,19 @@ export const HISTORY_SCHEMA = [
      content BLOB NOT NULL, PRIMARY KEY (unit, time, layout));
    CREATE TABLE rolled_up (
      unit TEXT PRIMARY KEY, "from" INTEGER NOT NULL, "to" INTEGER NOT NULL) WITHOUT ROWID;`,
+  // States that late readings rewind to; which entries of the journal came late; what was made again and
+  // what that changed; spans that the time-series database has to forget before it is given them anew.
+  `CREATE TABLE rewind_points (
+     unit TEXT NOT NULL, time INTEGER NOT NULL, journal_seq INTEGER NOT NULL,
+     fingerprint TEXT NOT NULL, image BLOB NOT NULL, PRIMARY KEY (unit, time));
+   CREATE TABLE late_readings (
+     unit TEXT NOT NULL, time INTEGER NOT NULL, seq INTEGER NOT NULL, PRIMARY KEY (unit, time, seq))
+     WITHOUT ROWID;
+   CREATE INDEX late_readings_by_seq ON late_readings (unit, seq);
+   CREATE TABLE rewinds (
+     no INTEGER PRIMARY KEY AUTOINCREMENT, unit TEXT NOT NULL, "from" INTEGER NOT NULL,
+     time INTEGER NOT NULL, json TEXT NOT NULL);
+   CREATE INDEX rewinds_by_time ON rewinds (unit, time);
+   CREATE TABLE withdrawals (
+     seq INTEGER PRIMARY KEY, unit TEXT NOT NULL, "from" INTEGER NOT NULL, time INTEGER NOT NULL);`,
 ];

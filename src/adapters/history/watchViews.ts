@@ -26,6 +26,13 @@ export class WatchViews {
       .run(view.unit, time_ms, deflateSync(JSON.stringify(view)));
   }
 
+  /** Deletes views of a span of time, which are made again. */
+  forget(unit: string, from_ms: number, end_ms: number): void {
+    this.database
+      .prepare('DELETE FROM watch WHERE unit = ? AND time >= ? AND time < ?')
+      .run(unit, from_ms, end_ms);
+  }
+
   latest(unit: string): WatchView | null {
     const content = this.database
       .prepare('SELECT content FROM watch WHERE unit = ? ORDER BY time DESC LIMIT 1')

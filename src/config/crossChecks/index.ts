@@ -5,6 +5,7 @@ import { accessFaults } from './access.js';
 import { channelFaults } from './channels.js';
 import { connectionFaults } from './connection.js';
 import { type CrossFault, cross, repeated } from './cross.js';
+import { lateFaults } from './late.js';
 import { limitFaults } from './limits.js';
 import { machineFaults } from './machine.js';
 import { operationFaults } from './operation.js';
@@ -22,6 +23,7 @@ export function crossFaults(site: SiteBlock): CrossFault[] {
     ...site.units.flatMap((unit, u) => unitFaults(unit, unitPath(u))),
     ...topicFaults(site),
     ...serviceFaults(site),
+    ...lateFaults(site),
     ...accessFaults(site),
   ];
 }

@@ -2,6 +2,7 @@ import { z } from 'zod';
 import { alarmsSchema } from './alarms.js';
 import { channelSchema } from './channels.js';
 import { id, key, positive, section } from './key.js';
+import { lateSchema } from './late.js';
 import { machineSchema } from './machine.js';
 import { notifySchema } from './notify.js';
 import { estimatorSchema, limitsSchema } from './operation.js';
@@ -75,6 +76,10 @@ export const siteSchema = z.strictObject({
     "A reading stamped further ahead of this machine's clock than this is counted and not used.",
     300,
   ).default(300),
+  late: section(
+    lateSchema.prefault({}),
+    'Readings that come when their scan is closed, as from a gateway that has stored them.',
+  ),
   mqtt: section(mqttSchema.prefault({}), 'Where the readings come from and the answers go.'),
   influx: section(
     influxSchema.optional(),

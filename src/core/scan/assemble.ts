@@ -134,6 +134,18 @@ export class Assembler {
     return Number.isFinite(this.newest_ms) ? this.newest_ms : null;
   }
 
+  /** Index of the oldest scan that is not handed out; null before the first reading. */
+  get openFrom(): number | null {
+    return this.next;
+  }
+
+  /** Index from which on no scan has a reading yet; null before the first reading. */
+  get untouchedFrom(): number | null {
+    return this.next === null
+      ? null
+      : Math.max(this.next, ...[...this.slots.keys()].map((i) => i + 1));
+  }
+
   /** Scans left out because a gap was longer than `longest_gap_scans`. */
   get skippedScans(): number {
     return this.skipped;

@@ -7,6 +7,7 @@ import type { StoreConfig } from '../../../src/config/site.js';
 import type { WatchView } from '../../../src/core/watch/causes.js';
 import { run, script } from '../../core/watch/cycleScript.js';
 import { temporaryFolder } from '../../support/folders.js';
+import { makeOlder } from './older.js';
 import { estimate, NOTHING, unit } from './unit.js';
 
 const DAY = 86_400_000;
@@ -119,9 +120,7 @@ describe('cycles', () => {
     const folder = temporaryFolder('cycles');
     opened(folder).stop();
     const old = new SQLite(join(folder, 'history.sqlite'));
-    old.exec(`DROP TABLE cycles; DROP TABLE watch; DROP TABLE tellings; DROP TABLE rollup_10min;
-      DROP TABLE rollup_2h; DROP TABLE rollup_1d; DROP TABLE rolled_up;`);
-    old.pragma('user_version = 3');
+    makeOlder(old, 'cycles');
     old.close();
     const history = opened(folder);
     expect(history.cycles.add(RUNS[0]!)).toBe(true);

@@ -3,10 +3,10 @@ import SQLite from 'better-sqlite3';
 import { describe, expect, it } from 'vitest';
 import { ceilTo, floorTo, LEVELS_MS, stretchFor } from '../../../src/adapters/history/buckets.js';
 import { History } from '../../../src/adapters/history/history.js';
-import { HISTORY_SCHEMA } from '../../../src/adapters/history/schema.js';
 import type { StoreConfig } from '../../../src/config/site.js';
 import { temporaryFolder } from '../../support/folders.js';
 import { mulberry } from '../../support/random.js';
+import { makeOlder } from './older.js';
 import { estimate, unit } from './unit.js';
 
 const T = Date.UTC(2026, 0, 1, 5, 3, 7);
@@ -165,10 +165,7 @@ describe('roll-ups', () => {
     add(before, rows);
     before.stop();
     const old = new SQLite(join(folder, 'history.sqlite'));
-    for (const table of ['rollup_10min', 'rollup_2h', 'rollup_1d', 'rolled_up']) {
-      old.exec(`DROP TABLE ${table}`);
-    }
-    old.pragma(`user_version = ${HISTORY_SCHEMA.length - 1}`);
+    makeOlder(old, 'rollup_10min');
     old.close();
 
     const history = opened(folder);

@@ -1,0 +1,165 @@
+import type { History } from '../adapters/history/history.js';
+import type { LateReading } from '../adapters/history/lateReadings.js';
+import type { WatchEvent } from '../core/watch/event.js';
+import { reasonOf } from '../errors.js';
+import type { Counters } from './counters.js';
+import type { Notices } from './notices.js';
+import type { RunnerStep, UnitRunner } from './unitRunner.js';
+
+/** Events kept while the history cannot be written; what is beyond is counted as lost. */
+const MOST_UNSTORED = 10_000;
+/** Late readings that are noted together at the latest, and most kept while they cannot be. */
+const NOTE_TOGETHER = 500;
+const MOST_UNNOTED = 200_000;
+
+export interface EnteringOptions {
+  readonly history: History;
+  readonly counters: Counters;
+  readonly notices: Notices;
+  readonly checkpoint_every_ms: number;
+  /** Spacing of the states that late readings rewind to, and how far back they are kept [ms]; 0 = none. */
+  readonly point_every_ms: number;
+  readonly reach_ms: number;
+  /** A step of a unit whose estimate is new. */
+  stepped(runner: UnitRunner, step: RunnerStep): void;
+  /** An event that is new. */
+  event(event: WatchEvent): void;
+  /** Alarms of a unit have changed without an event: a rule, or the time. */
+  alarmsMoved(unit: string): void;
+}
+
+/** What comes out of units goes into the history: estimates, events, states, and what came late. */
+export class Entering {
+  private readonly nextCheckpoint = new Map<string, number>();
+  private readonly nextPoint = new Map<string, number>();
+  private readonly unnoted = new Map<string, LateReading[]>();
+  private storeTrouble: string | null = null;
+  /** Events told while the history could not be written, in their order. */
+  private unstored: WatchEvent[] = [];
+
+  constructor(private readonly options: EnteringOptions) {}
+
+  /** Why the journal or the history could not be read or written the last time, null if they could. */
+  get trouble(): string | null {
+    return this.storeTrouble;
+  }
+
+  enter(runner: UnitRunner, step: RunnerStep): void {
+    const { history, counters, stepped, event, alarmsMoved } = this.options;
+    const { estimate, profile, events, cycle, watch } = step.step;
+    const time_ms = Date.parse(estimate.time);
+    try {
+      const news = history.write(() => {
+        const isNew = history.estimates.add(runner.unit, estimate, step.measured);
+        if (profile) history.profiles.add(profile);
+        if (cycle) history.cycles.add(cycle);
+        if (watch) history.watch.add(watch);
+        // A scan that is known, as in a replay after a restart, has moved its alarms already.
+        const moved = isNew && history.alarms.scan(runner.unit.id, estimate.mode, time_ms);
+        const late = this.unstored.filter((one) => history.events.add(one));
+        this.keepPoint(runner, time_ms);
+        return { isNew, moved, late, events: events.filter((one) => history.events.add(one)) };
+      });
+      this.storeTrouble = null;
+      this.unstored = [];
+      for (const unit of new Set(news.late.map((one) => one.unit))) alarmsMoved(unit);
+      if (news.isNew) stepped(runner, step);
+      for (const one of news.events) event(one);
+      if (news.moved) alarmsMoved(runner.unit.id);
+    } catch (thrown) {
+      // What cannot be stored is said all the same, and stored with the next scan that can be.
+      this.storeFailed('history_failures', thrown);
+      this.unstored.push(...events);
+      counters.add('events_lost', this.unstored.splice(MOST_UNSTORED).length);
+      stepped(runner, step);
+      for (const one of events) event(one);
+    }
+    this.checkpointIfDue(runner, time_ms);
+  }
+
+  /**
+   * Notes that a reading came late, at the latest with the next state that is saved: a restart from
+   * that one would not see it come again.
+   */
+  noteLate(unit: string, reading: LateReading): void {
+    const list = this.unnoted.get(unit) ?? [];
+    this.unnoted.set(unit, list);
+    if (list.length >= MOST_UNNOTED) this.options.counters.add('late_lost');
+    else list.push(reading);
+    if (list.length >= NOTE_TOGETHER) this.flushLate(unit);
+  }
+
+  /** Writes what is noted of a unit; false where the history cannot be written. */
+  flushLate(unit: string): boolean {
+    const { history } = this.options;
+    try {
+      history.write(() => this.writeLate(unit));
+      this.unnoted.delete(unit);
+      return true;
+    } catch (thrown) {
+      this.storeFailed('history_failures', thrown);
+      return false;
+    }
+  }
+
+  /** @param last with the newest profile, which is shown until the next start has its own */
+  save(runner: UnitRunner, last = false): void {
+    const { history } = this.options;
+    const checkpoint = runner.checkpoint();
+    if (!checkpoint) return;
+    try {
+      history.write(() => {
+        this.writeLate(runner.unit.id);
+        history.checkpoints.add(runner.unit, checkpoint);
+        runner.unsaved = false;
+        if (last && runner.view.profile) history.profiles.add(runner.view.profile, true);
+      });
+      this.unnoted.delete(runner.unit.id);
+    } catch (thrown) {
+      this.storeFailed('history_failures', thrown);
+    }
+  }
+
+  /** `KIND/SUBJECT` of what the unit's estimator has raised. */
+  standingOf(unit: string): ReadonlySet<string> {
+    try {
+      const events = this.options.history.alarms.active(unit);
+      const own = events.filter(({ kind }) => kind !== 'database_unreachable');
+      return new Set(own.map(({ kind, subject }) => `${kind}/${subject}`));
+    } catch (thrown) {
+      this.storeFailed('history_failures', thrown);
+      return new Set();
+    }
+  }
+
+  storeFailed(kind: 'journal_failures' | 'history_failures', thrown: unknown): void {
+    this.storeTrouble = reasonOf(thrown);
+    this.options.counters.add(kind);
+    this.options.notices.warn(kind, this.storeTrouble);
+  }
+
+  private checkpointIfDue(runner: UnitRunner, time_ms: number): void {
+    const due = this.nextCheckpoint.get(runner.unit.id);
+    if (due !== undefined && time_ms < due && !runner.unsaved) return;
+    this.nextCheckpoint.set(runner.unit.id, time_ms + this.options.checkpoint_every_ms);
+    // The first of this process would only repeat the one that it was restored from.
+    if (due !== undefined || runner.unsaved) this.save(runner);
+  }
+
+  private writeLate(unit: string): void {
+    const list = this.unnoted.get(unit);
+    if (list) this.options.history.late.add(unit, list);
+  }
+
+  /** Keeps the state where it is the first of its stretch, for late readings to go back to. */
+  private keepPoint(runner: UnitRunner, time_ms: number): void {
+    const { unit } = runner;
+    const { history, point_every_ms, reach_ms } = this.options;
+    if (reach_ms === 0 || time_ms < (this.nextPoint.get(unit.id) ?? Number.NEGATIVE_INFINITY))
+      return;
+    this.nextPoint.set(unit.id, (Math.floor(time_ms / point_every_ms) + 1) * point_every_ms);
+    if (history.rewindPoints.hasOneOf(unit.id, time_ms, point_every_ms)) return;
+    const checkpoint = runner.checkpoint();
+    if (checkpoint) history.rewindPoints.add(unit, checkpoint, point_every_ms);
+  }
+}

@@ -1,0 +1,328 @@
+import type { History } from '../../adapters/history/history.js';
+import type { Journal, ReadingEntry } from '../../adapters/history/journal.js';
+import { MOST_DIFFERENCES, type RewindRecord } from '../../core/scan/rewindRecord.js';
+import type { WatchEvent } from '../../core/watch/event.js';
+import { differences, hindsight } from '../../core/watch/hindsight.js';
+import { RockhourError, reasonOf } from '../../errors.js';
+import type { Log } from '../../log.js';
+import type { DaemonClock, SteadyClock } from '../clock.js';
+import type { Counters } from '../counters.js';
+import type { Entering } from '../entering.js';
+import type { Notices } from '../notices.js';
+import type { RunnerStep, UnitRunner } from '../unitRunner.js';
+import { planRewind } from './plan.js';
+import { Rerun } from './rerun.js';
+import type { RewindRules } from './rules.js';
+
+export interface RewinderOptions {
+  readonly journal: Journal;
+  readonly history: History;
+  readonly runners: readonly UnitRunner[];
+  readonly clock: DaemonClock;
+  readonly steady: SteadyClock;
+  readonly counters: Counters;
+  readonly notices: Notices;
+  readonly log: Log;
+  readonly entering: Entering;
+  readonly rules: RewindRules;
+  /** A runner of a unit without a past. */
+  fresh(unit: UnitRunner['unit']): UnitRunner;
+  /** Entries that the live units still have to work off. */
+  backlog(): number;
+  isBusy(runner: UnitRunner): boolean;
+  stepped(runner: UnitRunner, step: RunnerStep): void;
+  event(event: WatchEvent): void;
+  alarmsMoved(unit: string): void;
+}
+
+/** Work in one go [ms]: a scan, rather, where that is longer. */
+const SLICE_MS = 10;
+/** Pause where the live units have work, or are to go on first [ms]. */
+const PAUSE_MS = 5;
+/** Further behind the journal than this, the live units come first [entries]. */
+const MOST_BEHIND = 1000;
+/** After a failure [ms], and failures in a row after which the readings are given up. */
+const RETRY_MS = 5000;
+const MOST_FAILURES = 3;
+
+interface Waiting {
+  first_ms: number;
+  last_ms: number;
+}
+
+interface Job {
+  readonly runner: UnitRunner;
+  readonly work: Generator<'more' | 'wait', Outcome | null>;
+}
+
+interface Outcome {
+  readonly rerun: Rerun;
+  readonly second: UnitRunner;
+  readonly record: RewindRecord;
+  readonly events: readonly WatchEvent[];
+}
+
+/**
+ * Late readings: waits until a delivery is over, then makes the scans since the oldest of them again
+ * beside the live unit, in slices, and puts the state that comes out in the live one's place. One unit
+ * at a time. What waits and what is done is in the history: a kill amid it begins it again.
+ */
+export class Rewinder {
+  private readonly waiting = new Map<string, Waiting>();
+  private job: Job | null = null;
+  private timer: NodeJS.Timeout | null = null;
+  private running = false;
+  private readonly failures = new Map<string, number>();
+
+  constructor(private readonly options: RewinderOptions) {}
+
+  /** Once units are restored: what waited before the stop waits on. */
+  start(): void {
+    this.running = true;
+    const { runners, history, steady } = this.options;
+    const now = steady.now();
+    for (const { unit } of runners) {
+      if (history.late.waiting(unit.id)) this.waiting.set(unit.id, { first_ms: now, last_ms: now });
+    }
+  }
+
+  stop(): void {
+    this.running = false;
+    if (this.timer) clearTimeout(this.timer);
+    this.timer = null;
+    this.job = null;
+  }
+
+  /** Unit whose scans are made again at present. */
+  get busyWith(): string | null {
+    return this.job?.runner.unit.id ?? null;
+  }
+
+  /** Whether readings of a unit wait to be taken in. */
+  isAwaited(unit: string): boolean {
+    return this.waiting.has(unit);
+  }
+
+  /** A reading came when its scan was closed. */
+  note(runner: UnitRunner, { time_ms, seq }: ReadingEntry, isNew: boolean) {
+    const { rules, counters, notices, entering, steady } = this.options;
+    const { id } = runner.unit;
+    if (time_ms < (runner.newest_ms ?? time_ms) - rules.reach_ms) {
+      if (!isNew) return;
+      counters.add('too_late');
+      const time = new Date(time_ms).toISOString();
+      const reach = `${(rules.reach_ms / 3_600_000).toFixed(0)} h`;
+      notices.warn(
+        `too_late ${id}`,
+        `unit ${id}: a reading of ${time} is older than the ${reach} of late.rewind_h: not used`,
+      );
+      return;
+    }
+    entering.noteLate(id, { time_ms, seq });
+    const now = steady.now();
+    const known = this.waiting.get(id);
+    if (known) known.last_ms = now;
+    else this.waiting.set(id, { first_ms: now, last_ms: now });
+  }
+
+  /** To be called by a clock: begins what is due. */
+  poll(): void {
+    if (!this.running || this.job || this.timer) return;
+    const { runners, steady, rules, entering, backlog } = this.options;
+    if (backlog() > MOST_BEHIND) return;
+    const now = steady.now();
+    const isDue = ({ first_ms, last_ms }: Waiting) =>
+      now - last_ms >= rules.quiet_ms || now - first_ms >= rules.wait_ms;
+    const [due] = [...this.waiting]
+      .filter(([, waiting]) => isDue(waiting))
+      .sort(([, a], [, b]) => a.first_ms - b.first_ms);
+    const runner = due && runners.find(({ unit }) => unit.id === due[0]);
+    // A state that is to be taken over first comes to its time within the journal.
+    if (!runner?.isSettled || !entering.flushLate(runner.unit.id)) return;
+    this.waiting.delete(runner.unit.id);
+    this.job = { runner, work: this.rewind(runner) };
+    this.goOn(0);
+  }
+
+  /** Deletes states and late readings of before what can be gone back to. */
+  forgetOld(): void {
+    const { history, runners, rules, counters } = this.options;
+    for (const { unit, newest_ms } of runners) {
+      if (newest_ms === null || unit.id === this.busyWith) continue;
+      const end_ms = newest_ms - rules.reach_ms;
+      history.write(() => {
+        // One state from before it, for what is late by nearly as much.
+        history.rewindPoints.forget(unit, end_ms - rules.point_every_ms);
+        counters.add('too_late', history.late.forget(unit.id, end_ms - rules.point_every_ms));
+      });
+    }
+  }
+
+  private goOn(wait_ms: number): void {
+    this.timer = setTimeout(() => this.slice(), wait_ms);
+  }
+
+  private slice(): void {
+    this.timer = null;
+    const { job } = this;
+    if (!job) return;
+    if (this.options.backlog() > MOST_BEHIND) {
+      this.goOn(PAUSE_MS);
+      return;
+    }
+    try {
+      const { waits, outcome } = this.options.history.write(() => this.work(job));
+      if (outcome === undefined) {
+        this.goOn(waits || this.options.backlog() > 0 ? PAUSE_MS : 0);
+        return;
+      }
+      this.job = null;
+      if (outcome) this.swap(job.runner, outcome);
+    } catch (thrown) {
+      this.failed(job.runner, thrown);
+    }
+  }
+
+  private work({ work }: Job): { waits: boolean; outcome?: Outcome | null } {
+    const end = performance.now() + SLICE_MS;
+    do {
+      const { done, value } = work.next();
+      if (done) return { waits: false, outcome: value };
+      if (value === 'wait') return { waits: true };
+    } while (performance.now() < end);
+    return { waits: false };
+  }
+
+  /** All of a rewind but the last, which is done when its transaction is. */
+  private *rewind(live: UnitRunner): Generator<'more' | 'wait', Outcome | null> {
+    const { journal, history, rules, fresh, isBusy } = this.options;
+    const { unit } = live;
+    const through_seq = live.seq;
+    const parts = { journal, history, fresh: () => fresh(unit), ...rules };
+    const planning = planRewind(live, through_seq, parts);
+    let planned = planning.next();
+    for (; !planned.done; planned = planning.next()) yield 'more';
+    const { start, used, repeated, too_late } = planned.value;
+    this.tellUseless(unit.id, repeated, too_late);
+    if (start === null) {
+      history.late.take(unit.id, through_seq);
+      return null;
+    }
+    const second = start.runner;
+    const rerun = new Rerun({
+      ...{ journal, history, live, second, from_ms: start.time_ms, through_seq },
+      point_every_ms: rules.point_every_ms,
+      isAtRest: () => !isBusy(live),
+    });
+    yield* rerun.run();
+    return this.conclude(rerun, second, used, through_seq);
+  }
+
+  /** What a rewind comes to, in the same transaction as its last scan. */
+  private conclude(rerun: Rerun, second: UnitRunner, used: number, through_seq: number): Outcome {
+    const { history, clock } = this.options;
+    const { unit } = second;
+    rerun.past.end();
+    rerun.dropStates();
+    const state = second.checkpoint();
+    if (state) history.checkpoints.add(unit, state);
+    history.late.take(unit.id, through_seq);
+    const span = { from_ms: rerun.from_ms, end_ms: rerun.reached_ms + 1 };
+    const own = ({ kind }: WatchEvent) => kind !== 'database_unreachable';
+    const told = history.events.between(unit.id, span.from_ms, span.end_ms, 10_000).filter(own);
+    const found = differences(told, rerun.events, unit.scan_period_s * 1000);
+    const time = new Date(rerun.reached_ms).toISOString();
+    const active = history.alarms.active(unit.id).filter(own);
+    const events = hindsight(active, second.standing, time).filter((one) =>
+      history.events.add(one),
+    );
+    const newest = history.estimates.latest(unit.id);
+    if (newest) second.view.estimate = newest;
+    const record: RewindRecord = {
+      unit: unit.id,
+      done: new Date(clock.now()).toISOString(),
+      from: new Date(span.from_ms).toISOString(),
+      to: time,
+      scans: rerun.scans,
+      late_used: used,
+      revised: rerun.past.revised,
+      revision: history.estimates.newestRevision(unit.id, span),
+      differences: found.slice(0, MOST_DIFFERENCES),
+      differences_left_out: Math.max(0, found.length - MOST_DIFFERENCES),
+    };
+    history.rewinds.add(record);
+    return { rerun, second, record, events };
+  }
+
+  private swap(live: UnitRunner, { rerun, second, record, events }: Outcome): void {
+    const { counters, log, history, stepped, event, alarmsMoved } = this.options;
+    const { id } = live.unit;
+    live.adopt(second);
+    this.failures.delete(id);
+    counters.add('rewinds');
+    counters.add('scans_again', record.scans);
+    counters.add('estimates_revised', record.revised);
+    counters.add('late_used', record.late_used);
+    const { from, to, scans, late_used, revised } = record;
+    log.info(
+      { unit: id, from, to, scans, late_used, revised, differences: record.differences.length },
+      `${late_used} readings that came late are in their scans now; ${scans} scans made again`,
+    );
+    for (const one of events) event(one);
+    const { last } = rerun;
+    const { estimate } = live.view;
+    if (last === null || estimate === null) return;
+    const time_ms = Date.parse(estimate.time);
+    const moved = history.write(() => history.alarms.scan(id, estimate.mode, time_ms));
+    stepped(live, { ...last, step: { ...last.step, estimate } });
+    if (moved) alarmsMoved(id);
+  }
+
+  private tellUseless(unit: string, repeated: number, too_late: number): void {
+    const { counters, notices } = this.options;
+    counters.add('late_repeated', repeated);
+    counters.add('too_late', too_late);
+    if (repeated > 0) {
+      const why = 'their scans have values of these channels';
+      notices.info(
+        `late_repeated ${unit}`,
+        `unit ${unit}: ${repeated} late readings left out: ${why}`,
+      );
+    }
+    if (too_late > 0) {
+      const why = 'no state is kept from before them';
+      notices.warn(`too_late ${unit}`, `unit ${unit}: ${too_late} late readings not used: ${why}`);
+    }
+  }
+
+  /** What was written is right as far as it goes; begun again, it comes to the same. */
+  private failed(runner: UnitRunner, thrown: unknown): void {
+    const { counters, notices, steady, history } = this.options;
+    const { id } = runner.unit;
+    this.job = null;
+    counters.add('rewind_failures');
+    const times = (this.failures.get(id) ?? 0) + 1;
+    this.failures.set(id, times);
+    const now = steady.now();
+    let next = 'tries again';
+    if (times < MOST_FAILURES || isStoreTrouble(thrown))
+      this.waiting.set(id, { first_ms: now, last_ms: now });
+    else {
+      const lost = history.late.waiting(id, runner.seq)?.count ?? 0;
+      history.late.take(id, runner.seq);
+      this.failures.delete(id);
+      counters.add('late_lost', lost);
+      next = `gives up ${lost} of them`;
+    }
+    notices.warn(
+      `rewind_failures ${id}`,
+      `unit ${id}: readings that came late could not be taken in, ${next}: ${reasonOf(thrown)}`,
+    );
+    this.goOn(RETRY_MS);
+  }
+}
+
+/** A disk gets well again; a core that fails on a scan fails on it every time. */
+function isStoreTrouble(thrown: unknown): boolean {
+  return thrown instanceof RockhourError && thrown.code === 'STORE_FAILED';
+}
