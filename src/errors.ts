@@ -134,9 +134,40 @@ export class RockhourError extends Error {
   }
 }
 
-/** What an unknown thrown value says, in one line. */
+/** What was wrong with a certificate, by the codes of Node and OpenSSL. */
+const CERTIFICATE_WORDS: Readonly<Record<string, string>> = {
+  CERT_HAS_EXPIRED: "the server's certificate has ended",
+  CERT_NOT_YET_VALID: "the server's certificate is not valid yet; is this machine's clock right?",
+  ERR_TLS_CERT_ALTNAME_INVALID: "the server's certificate is for another host",
+  DEPTH_ZERO_SELF_SIGNED_CERT: 'the server vouches for its certificate itself; ca_file may name it',
+  SELF_SIGNED_CERT_IN_CHAIN: "the server's certificate is of an authority not in ca_file",
+  UNABLE_TO_VERIFY_LEAF_SIGNATURE: "the server's certificate is of an authority not in ca_file",
+  UNABLE_TO_GET_ISSUER_CERT: "the server's certificate is of an authority not in ca_file",
+  UNABLE_TO_GET_ISSUER_CERT_LOCALLY: "the server's certificate is of an authority not in ca_file",
+  CERT_SIGNATURE_FAILURE: "the server's certificate is of an authority not in ca_file",
+  ERR_SSL_TLSV13_ALERT_CERTIFICATE_REQUIRED:
+    'the server wants a certificate of rockhour: cert_file and key_file',
+  ERR_SSL_SSLV3_ALERT_HANDSHAKE_FAILURE:
+    'the server refused the TLS handshake; it may want a certificate of rockhour (cert_file, key_file)',
+  ERR_SSL_TLSV1_ALERT_DECRYPT_ERROR:
+    "the server cannot verify rockhour's certificate (cert_file) by its authorities",
+  ERR_SSL_TLSV1_ALERT_UNKNOWN_CA:
+    "the server does not believe the authority of rockhour's certificate (cert_file)",
+  ERR_SSL_SSLV3_ALERT_CERTIFICATE_EXPIRED: "rockhour's certificate (cert_file) has ended",
+  ERR_SSL_TLSV1_ALERT_PROTOCOL_VERSION: 'the server speaks no TLS 1.2 or later',
+  ERR_SSL_UNSUPPORTED_PROTOCOL: 'the server speaks no TLS 1.2 or later',
+  ERR_SSL_WRONG_VERSION_NUMBER: 'the server does not speak TLS at that port',
+  EPROTO: 'the server does not speak TLS as expected at that port',
+};
+
+/** What an unknown thrown value says, in one line; of certificates what is wrong with them. */
 export function reasonOf(thrown: unknown): string {
-  if (thrown instanceof Error) return thrown.message || thrown.name;
+  if (thrown instanceof Error) {
+    const { code } = thrown as { code?: unknown };
+    const words = typeof code === 'string' ? CERTIFICATE_WORDS[code] : undefined;
+    if (words !== undefined) return `${words} (${thrown.message})`;
+    return thrown.message || thrown.name;
+  }
   return String(thrown);
 }
 

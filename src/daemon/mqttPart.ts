@@ -77,6 +77,7 @@ export class MqttPart {
       client_id: config.client_id,
       username: this.broker?.login?.username ?? config.username,
       password: this.broker?.login?.password ?? config.password,
+      tls: config.tls ?? null,
       // The embedded broker speaks 3.1.1 only.
       protocol: this.broker ? 4 : config.protocol,
       qos: config.qos,

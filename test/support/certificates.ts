@@ -1,6 +1,6 @@
 import { execFileSync } from 'node:child_process';
 import { writeFileSync } from 'node:fs';
-import { join } from 'node:path';
+import { basename, join } from 'node:path';
 import { temporaryFolder } from './folders.js';
 
 /** Files of an authority and of what it has signed, made by openssl for one test file. */
@@ -28,7 +28,17 @@ export function makeCertificates(openssl = 'openssl'): Certificates {
     ...['-nodes', '-keyout', file],
   ];
   const [ca, caKey, settings] = [at('ca.pem'), at('ca.key'), at('ca.cnf')];
-  run('req', '-x509', ...newKey(caKey), '-out', ca, '-days', '2', '-subj', '/CN=test authority');
+  run(
+    'req',
+    '-x509',
+    ...newKey(caKey),
+    '-out',
+    ca,
+    '-days',
+    '2',
+    '-subj',
+    `/CN=${basename(folder)}`,
+  );
   writeFileSync(at('index.txt'), '');
   const lines = [
     ...['[ca]', 'default_ca = own', '[own]', `database = ${at('index.txt')}`],

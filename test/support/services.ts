@@ -67,8 +67,15 @@ function accepts(port: number): Promise<boolean> {
   });
 }
 
-/** mosquitto as a site would run it: nothing lost to a slow subscriber or to its own restart. */
-export async function startMosquitto(program: string, port?: number): Promise<Service> {
+/**
+ * mosquitto as a site would run it: nothing lost to a slow subscriber or to its own restart.
+ * @param own further lines of its configuration, for its one listener
+ */
+export async function startMosquitto(
+  program: string,
+  port?: number,
+  own: readonly string[] = [],
+): Promise<Service> {
   const at = port ?? (await freePort());
   const folder = temporaryFolder('mosquitto');
   const config = join(folder, 'mosquitto.conf');
@@ -80,6 +87,7 @@ export async function startMosquitto(program: string, port?: number): Promise<Se
     'persistence true',
     `persistence_location ${folder}/`,
     'autosave_interval 1',
+    ...own,
   ];
   if (process.getuid?.() === 0) lines.push('user root');
   writeFileSync(config, `${lines.join('\n')}\n`);
@@ -95,8 +103,15 @@ export async function startMosquitto(program: string, port?: number): Promise<Se
   return service;
 }
 
-/** InfluxDB 1.x with an empty data folder. */
-export async function startInflux(program: string, port?: number): Promise<Service> {
+/**
+ * InfluxDB 1.x with an empty data folder.
+ * @param own further lines of its section [http]; with https among them it is asked by TLS
+ */
+export async function startInflux(
+  program: string,
+  port?: number,
+  own: readonly string[] = [],
+): Promise<Service> {
   const at = port ?? (await freePort());
   const rpc = await freePort();
   const folder = temporaryFolder('influx');
@@ -113,15 +128,17 @@ export async function startInflux(program: string, port?: number): Promise<Servi
     '[http]',
     `bind-address = "127.0.0.1:${at}"`,
     'log-enabled = false',
+    ...own,
   ];
   writeFileSync(config, `${lines.join('\n')}\n`);
   const service = new ProcessService(
     at,
-    `http://127.0.0.1:${at}`,
+    `${own.some((line) => line.startsWith('https-enabled')) ? 'https' : 'http'}://127.0.0.1:${at}`,
     folder,
     program,
     ['run', '-config', config],
     async () => {
+      if (own.length > 0) return accepts(at);
       try {
         return (await fetch(`http://127.0.0.1:${at}/ping`)).status === 204;
       } catch {

@@ -1,4 +1,6 @@
+import type { SecureContextOptions } from 'node:tls';
 import { connect, type IClientOptions, type IPublishPacket, type MqttClient } from 'mqtt';
+import type { ClientTls } from '../../config/site.js';
 import { reasonOf } from '../../errors.js';
 
 /** A message that came in. It is the broker's until it is acknowledged. */
@@ -22,6 +24,8 @@ export interface LinkOptions {
   readonly client_id: string;
   readonly username: string | null;
   readonly password: string | null;
+  /** Certificates, where the url is one with TLS. */
+  readonly tls?: ClientTls | null;
   readonly protocol: 4 | 5;
   readonly qos: 0 | 1;
   readonly topics: readonly string[];
@@ -221,6 +225,7 @@ function clientOptions(options: LinkOptions): IClientOptions {
     clientId: options.client_id,
     clean: false,
     protocolVersion: options.protocol,
+    ...tlsOptions(options),
     ...(options.username === null ? {} : { username: options.username }),
     ...(options.password === null ? {} : { password: options.password }),
     ...(options.protocol === 5 ? { properties: { sessionExpiryInterval: SESSION_EXPIRY_S } } : {}),
@@ -231,5 +236,19 @@ function clientOptions(options: LinkOptions): IClientOptions {
     reconnectOnConnackError: true,
     resubscribe: false,
     queueQoSZero: false,
+  };
+}
+
+/** A certificate is always checked; nothing older than TLS 1.2 is spoken. */
+function tlsOptions({ url, tls = null }: LinkOptions): IClientOptions & SecureContextOptions {
+  if (!/^(mqtts|tls|wss):/.test(url())) return {};
+  const { ca = null, cert = null, key = null, server_name: servername = null } = tls ?? {};
+  return {
+    rejectUnauthorized: true,
+    minVersion: 'TLSv1.2',
+    ...(ca === null ? {} : { ca }),
+    ...(cert === null ? {} : { cert }),
+    ...(key === null ? {} : { key }),
+    ...(servername === null ? {} : { servername }),
   };
 }

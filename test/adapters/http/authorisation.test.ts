@@ -199,7 +199,7 @@ describe('the log-in of the page', () => {
     ]) {
       expect(await post(headers as Record<string, string>)).toBe('other_origin');
     }
-    expect(built.plant.acknowledged).not.toContain(id);
+    expect(built.plant.acknowledged.map((one) => one.id)).not.toContain(id);
     expect(await post({ origin: 'http://localhost:8080', host })).toBe(200);
     // A header beside the cookie comes from a program.
     expect((await ask('GET /api/units', { ...cookie, ...bearer('wrong') })).statusCode).toBe(401);
