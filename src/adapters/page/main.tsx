@@ -8,6 +8,7 @@ import './style/alarms.css';
 import './style/maintenance.css';
 import './style/trader.css';
 import './style/site.css';
+import './style/login.css';
 import { options, render } from 'preact';
 import { App } from './app/App.js';
 import { byId } from './lib/dom.js';

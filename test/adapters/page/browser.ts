@@ -2,6 +2,7 @@ import { fileURLToPath } from 'node:url';
 import { pino } from 'pino';
 import { type Browser, chromium, type Page } from 'playwright-core';
 import { build } from 'vite';
+import type { Access } from '../../../src/access/access.js';
 import { createHttpServer, type HttpServer } from '../../../src/adapters/http/server.js';
 import type { HttpTuning } from '../../../src/adapters/http/tuning.js';
 import { temporaryFolder } from '../../support/folders.js';
@@ -39,7 +40,12 @@ export interface Served {
 export async function serve(
   plant: ScriptedPlant,
   pageFolder: string,
-  options: { port?: number; prefix?: string; tuning?: Partial<HttpTuning> } = {},
+  options: {
+    port?: number;
+    prefix?: string;
+    tuning?: Partial<HttpTuning>;
+    access?: Access;
+  } = {},
 ): Promise<Served> {
   const server = createHttpServer(
     plant,
@@ -47,6 +53,7 @@ export async function serve(
     {
       log: pino({ level: 'silent' }),
       pageFolder,
+      ...(options.access === undefined ? {} : { access: options.access }),
       tuning: { state_every_ms: 10, heartbeat_ms: 200, ...options.tuning },
     },
   );

@@ -1,6 +1,7 @@
 import { useEffect, useRef } from 'preact/hooks';
 import { zoneText } from '../lib/format.js';
-import { model } from '../lib/page.js';
+import { login, loginWanted } from '../lib/login.js';
+import { logOut, model } from '../lib/page.js';
 import { route, type Sheet } from '../lib/route.js';
 import { bannerText, isOld, TRUST_WORDS, trustOf } from '../lib/trust.js';
 import { MaintenanceSheet } from '../maintenance/MaintenanceSheet.js';
@@ -8,6 +9,7 @@ import { OperatorSheet } from '../operator/OperatorSheet.js';
 import { SiteSheet } from '../site/SiteSheet.js';
 import { TraderSheet } from '../trader/TraderSheet.js';
 import { Head } from './Head.js';
+import { LogIn } from './LogIn.js';
 
 const SHEET_OF: Readonly<Record<Sheet, () => preact.JSX.Element>> = {
   now: OperatorSheet,
@@ -16,8 +18,13 @@ const SHEET_OF: Readonly<Record<Sheet, () => preact.JSX.Element>> = {
   site: SiteSheet,
 };
 
-/** The page: head and foot are the same on every sheet, so that old data never pass unnoticed. */
+/** The log-in where one is loginWanted, else the page. */
 export function App() {
+  return loginWanted.value ? <LogIn /> : <Page />;
+}
+
+/** The page: head and foot are the same on every sheet, so that old data never pass unnoticed. */
+function Page() {
   const { sheet, part } = route.value;
   const main = useRef<HTMLElement>(null);
   const first = useRef(true);
@@ -27,10 +34,10 @@ export function App() {
 
   // A sheet that was changed to is read from its head, a part that was meant from there.
   useEffect(() => {
-    const wanted = part === '' ? null : document.getElementById(part.split('/')[0] ?? '');
-    if (wanted !== null) {
-      wanted.scrollIntoView();
-      wanted.focus({ preventScroll: true });
+    const loginWanted = part === '' ? null : document.getElementById(part.split('/')[0] ?? '');
+    if (loginWanted !== null) {
+      loginWanted.scrollIntoView();
+      loginWanted.focus({ preventScroll: true });
     } else if (!first.current) {
       window.scrollTo(0, 0);
       main.current?.focus({ preventScroll: true });
@@ -70,7 +77,22 @@ function Foot() {
         system. Hazards of pressure, heat, cold and oxygen deficiency are matters for the plant’s
         protection systems, local codes and licensed people.
       </p>
+      <LoggedIn />
       <p id="about">{`rockhour ${model.version.value} · times in ${zoneText(new Date())}`}</p>
     </footer>
+  );
+}
+
+/** Whose log-in this is, and its end; nothing where rockhour asks for no tokens. */
+function LoggedIn() {
+  const { name = null, role = null } = login.value ?? {};
+  if (name === null) return null;
+  return (
+    <p id="who-am-i">
+      {`Logged in as ${name}, who may ${role === 'view' ? 'look' : role}`}
+      <button type="button" onClick={() => void logOut()}>
+        Log out
+      </button>
+    </p>
   );
 }

@@ -1,3 +1,4 @@
+import { type LoggedIn, login, loginWanted } from './login.js';
 import type {
   AlarmLists,
   AskedHours,
@@ -46,6 +47,20 @@ export class Api {
     if (profileOf !== null) url.searchParams.set('profile', profileOf);
     if (lastEventId !== null) url.searchParams.set('last_event_id', lastEventId);
     return url.href;
+  }
+
+  /** Who asks, as the server knows it. */
+  async whoAmI(): Promise<void> {
+    login.value = await this.get<LoggedIn>('api/login');
+  }
+
+  /** @throws AnswerError where the token is nobody's */
+  async logIn(token: string): Promise<void> {
+    login.value = await this.post<LoggedIn>('api/login', { token });
+  }
+
+  async logOut(): Promise<void> {
+    await this.post('api/logout', {});
   }
 
   units = () => this.get<UnitList>('api/units');
@@ -126,6 +141,8 @@ export class Api {
     const body = await answer.json().catch(() => null);
     if (answer.ok && body !== null) return body as T;
     const error = body?.error;
+    // Of a question, not of the log-in itself, which says so where it is made.
+    if (answer.status === 401 && !url.endsWith('api/login')) loginWanted.value = true;
     throw new AnswerError(
       typeof error?.message === 'string'
         ? error.message

@@ -47,6 +47,14 @@ export class LiveConnection {
     this.open();
   }
 
+  /** Ends the stream until it is followed again. */
+  stop(): void {
+    window.clearTimeout(this.retryTimer);
+    this.retryTimer = undefined;
+    this.source?.close();
+    this.source = null;
+  }
+
   private open(): void {
     window.clearTimeout(this.retryTimer);
     this.retryTimer = undefined;

@@ -1,5 +1,7 @@
+import { effect } from '@preact/signals';
 import { Api } from './api.js';
 import { LiveConnection } from './live.js';
+import { loginWanted } from './login.js';
 import { PageModel } from './model.js';
 import { putUnitInAddress, unitOfAddress } from './route.js';
 
@@ -12,6 +14,7 @@ export const api = new Api();
 
 /** The list of what stands is always asked of the server whole, never pieced together here. */
 export async function reloadAlarms(): Promise<void> {
+  if (loginWanted.peek()) return;
   try {
     const { standing, suppressed, shelve_most_h } = await api.alarms();
     model.shelveMost_h.value = shelve_most_h;
@@ -51,7 +54,18 @@ const live = new LiveConnection((profileOf, id) => api.streamUrl(profileOf, id),
     void reloadAlarms();
   },
   beat: (beat) => model.takeBeat(beat),
-  lost: () => model.setConnection('lost'),
+  lost: () => {
+    model.setConnection('lost');
+    // A stream does not tell why it ended: a question does, if the log-in was taken back.
+    void reloadAlarms();
+  },
+});
+
+// Without a log-in nothing is asked for; what was shown is gone with the sheets.
+effect(() => {
+  if (!loginWanted.value) return;
+  live.stop();
+  model.setConnection('lost');
 });
 
 /** Chooses the unit that all sheets show. */
@@ -66,7 +80,10 @@ export function select(unit: string): void {
 export async function begin(): Promise<void> {
   try {
     await loadUnits();
+    loginWanted.value = false;
+    await api.whoAmI();
   } catch {
+    if (loginWanted.peek()) return;
     model.setConnection('lost');
     window.setTimeout(() => void begin(), RETRY_MS);
     return;
@@ -75,6 +92,12 @@ export async function begin(): Promise<void> {
   const known = model.units.value.some((entry) => entry.unit === wanted);
   const unit = known ? wanted : model.selected.value;
   if (unit !== null) select(unit);
+}
+
+/** Ends the log-in; the page asks for a token again. */
+export async function logOut(): Promise<void> {
+  await api.logOut().catch(() => undefined);
+  loginWanted.value = true;
 }
 
 /** What happens by time alone: ages grow, lists of alarms are asked for again. */

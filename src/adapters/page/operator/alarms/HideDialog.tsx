@@ -1,5 +1,6 @@
 import { useEffect, useRef, useState } from 'preact/hooks';
 import { clock, hoursText } from '../../lib/format.js';
+import { ownName } from '../../lib/login.js';
 import { typedPower as typedNumber } from '../../lib/powers.js';
 import type { Standing } from '../../lib/wire.js';
 import { type HidingAction, send } from './commands.js';
@@ -54,7 +55,8 @@ export function HideDialog({
     const why = String(said.get('why')).trim();
     const typed = String(said.get('hours') ?? '');
     const time_h = typedNumber(typed);
-    if (who.value.trim() === '') return wrong('Say who: a name is recorded with it.', 'hide-who');
+    if (who.value.trim() === '' && ownName() === null)
+      return wrong('Say who: a name is recorded with it.', 'hide-who');
     if (why === '') return wrong('Say why: the reason is recorded with it.', 'hide-why');
     if (action === 'shelve' && (time_h === null || time_h > most_h)) {
       const words = `A time on the shelf is a number of hours, ${most_h} at most; "${typed}" is not.`;

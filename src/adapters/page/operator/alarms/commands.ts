@@ -1,5 +1,6 @@
 import { signal } from '@preact/signals';
 import { wordsOf } from '../../lib/api.js';
+import { ownName } from '../../lib/login.js';
 import { api, reloadAlarms } from '../../lib/page.js';
 import { rememberWho, who } from './who.js';
 
@@ -27,7 +28,9 @@ export async function send(
 ): Promise<string | null> {
   let fault: string | null = null;
   try {
-    await api.post(pathOf(action), { ...body, who: who.value.trim() });
+    // With a log-in its name is recorded, with or without another.
+    const said = who.value.trim();
+    await api.post(pathOf(action), { ...body, ...(said === '' ? {} : { who: said }) });
     rememberWho();
   } catch (error) {
     fault = `${NOT_DONE[action]} ${wordsOf(error)}`;
@@ -38,7 +41,7 @@ export async function send(
 
 /** A command that asks for a name only; without one it says so and goes to its field. */
 export async function command(action: Action, id: string): Promise<void> {
-  if (who.value.trim() === '') {
+  if (who.value.trim() === '' && ownName() === null) {
     commandFault.value =
       action === 'acknowledge'
         ? 'Say first who acknowledges: a name is recorded with it.'
