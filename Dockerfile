@@ -9,7 +9,8 @@ RUN npm ci --no-audit --no-fund
 COPY tsconfig.json ./
 COPY tools tools
 COPY src src
-RUN npm run build && npm prune --omit=dev --no-audit --no-fund
+RUN npm run build && npm prune --omit=dev --no-audit --no-fund \
+ && npm run --silent sbom > sbom.json
 
 FROM node:20-bookworm-slim
 ENV NODE_ENV=production \
@@ -22,6 +23,8 @@ RUN groupadd --gid 10001 rockhour \
 COPY --from=build /app/node_modules /app/node_modules
 COPY --from=build /app/dist /app/dist
 COPY package.json /app/package.json
+# Software bill of materials (CycloneDX) of what is in here.
+COPY --from=build /app/sbom.json /app/sbom.json
 COPY bin /app/bin
 COPY config /app/config
 RUN ln -s /app/bin/rockhour /usr/local/bin/rockhour

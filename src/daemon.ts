@@ -4,6 +4,7 @@ import { TokensWatch } from './access/tokensWatch.js';
 import { FolderLock } from './adapters/history/folderLock.js';
 import { History } from './adapters/history/history.js';
 import { Journal } from './adapters/history/journal.js';
+import { ScanTimes } from './adapters/http/scanTimes.js';
 import { createHttpServer } from './adapters/http/server.js';
 import type { HealthPart, PlantService } from './adapters/http/service.js';
 import { Intake } from './adapters/mqtt/intake.js';
@@ -18,6 +19,7 @@ import { Counters } from './daemon/counters.js';
 import { DatabasePart } from './daemon/databasePart.js';
 import { Entering } from './daemon/entering.js';
 import { brokerHealth, storeHealth, unitHealth } from './daemon/health.js';
+import { Hourly } from './daemon/hourly.js';
 import { Housekeeping } from './daemon/housekeeping.js';
 import { runnerMaker } from './daemon/makeRunners.js';
 import { MqttPart } from './daemon/mqttPart.js';
@@ -84,6 +86,7 @@ class RockhourDaemon implements Daemon {
   private readonly counters = new Counters();
   /** Who may come in, to page, API and its own broker alike. */
   private readonly access: Access;
+  private readonly scanTimes = new ScanTimes();
   private readonly journal: Journal;
   private readonly history: History;
   private readonly questions: Questions;
@@ -130,7 +133,13 @@ class RockhourDaemon implements Daemon {
     const steady = new SteadyClock(clock, 4 * poll_ms * clock.speed);
     const units = { ...common, runners: [...this.runners.values()], steady };
     const tells = {
-      stepped: (runner: UnitRunner, step: RunnerStep) => this.speaker.stepped(runner, step),
+      stepped: (runner: UnitRunner, step: RunnerStep) => {
+        this.speaker.stepped(runner, step);
+        const { heard_ms } = runner;
+        if (heard_ms !== null) {
+          this.scanTimes.observe(runner.unit.id, (clock.now() - heard_ms) / 1000);
+        }
+      },
       event: (event: WatchEvent) => this.alarms.event(event),
       alarmsMoved: (unit: string) => this.alarms.moved(unit),
     };
@@ -208,7 +217,9 @@ class RockhourDaemon implements Daemon {
       store: site.store,
       questions: this.questions,
       kept: (unit, table) => this.speaker.sayOffers(unit, table),
+      scanTimes: this.scanTimes,
       health: () => this.health(),
+      backlogs: () => this.backlogs(),
       alarms: this.alarms,
     });
   }
@@ -289,6 +300,16 @@ class RockhourDaemon implements Daemon {
       () => mqtt.startLink(),
       () => mqtt.stopLink(),
     );
+    const hourly = new Hourly({
+      ...{ log: this.log, clock: this.clock, counters: this.counters },
+      qualities: () => [...this.runners.values()].map(({ view }) => view.estimate?.quality ?? null),
+      standing: () => this.service.standing().length,
+      backlogs: () => this.backlogs(),
+    });
+    await this.begin(
+      () => hourly.start(),
+      () => hourly.stop(),
+    );
     await this.begin(
       () => housekeeping.start(),
       () => housekeeping.stop(),
@@ -333,6 +354,12 @@ class RockhourDaemon implements Daemon {
     });
     this.ending.push(() => server.stop());
     return (await server.start()).url;
+  }
+
+  private backlogs(): Record<string, number> {
+    const { database, notify, pipeline } = this;
+    const forwarding = database ? { influxdb: database.backlog } : {};
+    return { pipeline: pipeline.backlog, ...forwarding, ...notify.backlogs };
   }
 
   private health(): HealthPart[] {

@@ -20,6 +20,11 @@ export interface ThermocoupleCounts {
 /** What a scan brought and what of it was not used, for those who run the plant's instruments. */
 export interface ScanCounts {
   readonly stores: Readonly<Record<string, ThermocoupleCounts>>;
+  /**
+   * Running mean, by store, of the innovations' squares over what was expected, 1 = as expected: the
+   * mean over its tubes. Far above 1 the rock is not as the configuration says.
+   */
+  readonly surprise: Readonly<Record<string, number>>;
   /** Readings of other channels that no plant produces; while there is one the quality is no `good`. */
   readonly implausible: readonly ImplausibleReading[];
   /** Mode as told and flow as metered contradict each other, now; scans in which they did so far. */

@@ -146,8 +146,13 @@ function countsOf(model: UnitModel, state: UnitState, taken: Taken): ScanCounts 
     store.store.id,
     countThermocouples(store, state.stores[s] as StoreState, taken.scan.values),
   ]);
+  const surprise = model.stores.map((store, s) => {
+    const { tubes } = state.stores[s] as StoreState;
+    return [store.store.id, tubes.reduce((sum, one) => sum + one.surprise, 0) / tubes.length];
+  });
   return {
     stores: Object.fromEntries(stores),
+    surprise: Object.fromEntries(surprise),
     implausible: implausibleReadings(model.unit, taken.implausible),
     mode_disagrees: taken.disagrees,
     mode_disagreements: state.conditions.disagreements,

@@ -50,6 +50,11 @@ export class DatabasePart {
     return databaseHealth(this.forwarder, this.options.history.outbox);
   }
 
+  /** Entries that wait to be forwarded. */
+  get backlog(): number {
+    return this.options.history.outbox.backlog;
+  }
+
   /** Everything up to here has been forwarded. */
   get cursor(): number {
     return this.options.history.outbox.cursor;

@@ -43,6 +43,15 @@ export class NotifyPart {
     });
   }
 
+  /** Events that wait, by receiver. */
+  get backlogs(): Record<string, number> {
+    const waiting = this.receivers.map(({ config, backlog }) => [
+      `webhook ${config.id}`,
+      backlog(),
+    ]);
+    return Object.fromEntries(waiting);
+  }
+
   /** To be called with the history open. */
   start(): void {
     this.receivers = this.options.config.webhooks.map((config) => this.receiver(config));

@@ -1,4 +1,5 @@
 import type { History } from '../adapters/history/history.js';
+import type { ScanTimes } from '../adapters/http/scanTimes.js';
 import type {
   AlarmAnswer,
   HealthPart,
@@ -48,7 +49,9 @@ export interface PlantServiceParts {
   readonly counters: Counters;
   readonly alarms: AlarmPart;
   readonly clock: DaemonClock;
+  readonly scanTimes: ScanTimes;
   health(): HealthPart[];
+  backlogs(): Record<string, number>;
   /** An offer table has been kept. */
   kept(unit: string, table: KeptTable): void;
 }
@@ -68,6 +71,14 @@ export class DaemonService implements PlantService {
 
   get version(): string {
     return this.parts.version;
+  }
+
+  get scanTimes(): ScanTimes {
+    return this.parts.scanTimes;
+  }
+
+  backlogs(): Record<string, number> {
+    return this.parts.backlogs();
   }
 
   unitIds(): string[] {

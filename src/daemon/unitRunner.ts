@@ -85,6 +85,8 @@ export class UnitRunner {
   private state: UnitState;
   private readonly channelIndex: ReadonlyMap<string, number>;
   private readonly finish;
+  /** When the newest entry came [ms]; null before the first of this process. */
+  heard_ms: number | null = null;
   /** Entries up to this number are in the state. */
   private taken_seq = 0;
   private awaited: Awaited | null = null;
@@ -223,6 +225,7 @@ export class UnitRunner {
   take(entry: JournalEntry, steady_ms: number): ReadingFate | 'unconfigured' | null {
     if (entry.seq <= this.taken_seq) return null;
     this.taken_seq = entry.seq;
+    this.heard_ms = entry.arrival_ms;
     if (entry.kind === 'close') {
       this.assembler.closeThrough(entry.scan_index);
       return null;

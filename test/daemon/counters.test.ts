@@ -11,9 +11,10 @@ describe('the counters of scans', () => {
     const gas = (channel: string) => ({ channel, kind: 'gas_temperature' as const });
     const flow = { channel: 'flow', kind: 'flow' } as const;
     const mode = { mode_disagrees: false, mode_disagreements: 4 };
-    counters.addScan({ stores, implausible: [gas('top'), gas('bottom'), flow], ...mode });
+    const surprise = { hot: 1 };
+    counters.addScan({ stores, surprise, implausible: [gas('top'), gas('bottom'), flow], ...mode });
     const against = { mode_disagrees: true, mode_disagreements: 5 };
-    counters.addScan({ stores: { hot: thermocouples }, implausible: [flow], ...against });
+    counters.addScan({ stores: { hot: thermocouples }, surprise, implausible: [flow], ...against });
     expect(counters.all()).toMatchObject({
       thermocouples: 24,
       thermocouples_used: 14,

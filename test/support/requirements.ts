@@ -8,6 +8,7 @@ import { delimiter, join } from 'node:path';
 export const PROGRAMS = {
   mosquitto: { names: ['mosquitto'], package: 'mosquitto' },
   influxd: { names: ['influxd'], package: 'influxdb' },
+  systemdAnalyze: { names: ['systemd-analyze'], package: 'systemd' },
   chromium: { names: ['chromium', 'chromium-browser'], package: 'chromium' },
 } as const;
 export type ProgramName = keyof typeof PROGRAMS;

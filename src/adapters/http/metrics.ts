@@ -58,6 +58,16 @@ export async function metricsText(
     '1 where mode as told and flow as metered contradict each other in the newest scan',
     ['unit'],
   );
+  const ratio = gauge(
+    'rockhour_innovation_ratio',
+    'Mean square of innovations over what was expected, lately: 1 = as expected',
+    ['unit', 'store'],
+  );
+  const late = gauge('rockhour_scan_lateness_newest_seconds', 'Lateness of the newest scan', [
+    'unit',
+  ]);
+  const waiting = gauge('rockhour_backlog', 'Entries that wait', ['to']);
+  for (const [to, count] of Object.entries(service.backlogs())) waiting.set({ to }, count);
   const stands = gauge('rockhour_standing', 'Alarms and alerts in the list', [
     'unit',
     'class',
@@ -75,6 +85,11 @@ export async function metricsText(
         thermocouples.set({ unit, store, state }, count);
       }
     }
+    for (const [store, value] of Object.entries(now.counts?.surprise ?? {})) {
+      ratio.set({ unit, store }, value);
+    }
+    const newest_s = service.scanTimes?.latest(unit);
+    if (newest_s !== undefined) late.set({ unit }, newest_s);
     if (now.counts) disagrees.set({ unit }, now.counts.mode_disagrees ? 1 : 0);
     for (const { channel, kind } of now.counts?.implausible ?? []) {
       implausible.set({ unit, channel, kind }, 1);
@@ -84,8 +99,12 @@ export async function metricsText(
       stands.inc({ unit, class: event.class, state: event.state });
     }
   }
-  gauge('process_resident_memory_bytes', 'Resident memory').set(process.memoryUsage().rss);
+  const { rss, heapUsed, external } = process.memoryUsage();
+  gauge('process_resident_memory_bytes', 'Resident memory').set(rss);
+  gauge('nodejs_heap_size_used_bytes', 'Heap in use').set(heapUsed);
+  gauge('nodejs_external_memory_bytes', 'Memory outside the heap').set(external);
   gauge('process_uptime_seconds', 'Time since the process began').set(process.uptime());
   addCounters(registry, { ...service.counters(), ...extra });
-  return { text: await registry.metrics(), contentType: registry.contentType };
+  const all = service.scanTimes ? Registry.merge([registry, service.scanTimes.registry]) : registry;
+  return { text: await all.metrics(), contentType: registry.contentType };
 }

@@ -14,6 +14,7 @@ import type { WatchView } from '../../core/watch/causes.js';
 import type { CycleRecord } from '../../core/watch/cycleRecord.js';
 import type { WatchEvent } from '../../core/watch/event.js';
 import type { UnitWorth } from '../../core/worth/unitWorth.js';
+import type { ScanTimes } from './scanTimes.js';
 
 /** What became of a command about an alarm; `entry` is null where it has left the list by it. */
 export type AlarmAnswer =
@@ -91,6 +92,10 @@ export interface PlantService {
   readonly siteName: string;
   readonly version: string;
   unitIds(): string[];
+  /** How late scans are; absent where no scans are taken in. */
+  readonly scanTimes?: ScanTimes;
+  /** What waits: for the estimator (`pipeline`), for the database, for each webhook, by name. */
+  backlogs(): Readonly<Record<string, number>>;
   /** undefined for an unknown unit. */
   now(unit: string): UnitNow | undefined;
   hours(

@@ -370,7 +370,8 @@ describe('the good answers, each held against the schema that documents it', () 
     expect((await unit()).counts).toBeNull();
     const hot = { thermocouples: 42, used: 38, rejected: 2, left_out: 1, missing: 1 };
     const implausible = [{ channel: 'hot_top', kind: 'gas_temperature' }] as const;
-    plant.counts = { stores: { hot }, implausible, mode_disagrees: true, mode_disagreements: 3 };
+    const mode = { mode_disagrees: true, mode_disagreements: 3 };
+    plant.counts = { stores: { hot }, surprise: { hot: 1.25 }, implausible, ...mode };
     expect((await unit()).counts).toEqual(plant.counts);
     const lines = (await get('/metrics')).body.split('\n');
     const { thermocouples: _all, ...by } = hot;
@@ -381,6 +382,10 @@ describe('the good answers, each held against the schema that documents it', () 
     const labels = 'unit="north",channel="hot_top",kind="gas_temperature"';
     expect(lines).toContain(`rockhour_implausible_reading{${labels}} 1`);
     expect(lines).toContain('rockhour_mode_disagrees{unit="north"} 1');
+    expect(lines).toContain('rockhour_innovation_ratio{unit="north",store="hot"} 1.25');
+    expect(lines).toContain('rockhour_backlog{to="influxdb"} 12');
+    const heap = lines.find((line) => line.startsWith('nodejs_heap_size_used_bytes '))!;
+    expect(Number(heap.split(' ')[1])).toBeGreaterThan(1e6);
   });
 
   it('writes a number that is not finite as null, and counts it', async () => {

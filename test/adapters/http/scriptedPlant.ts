@@ -149,6 +149,10 @@ export class ScriptedPlant implements PlantService {
     return this.listeners.size;
   }
 
+  backlogs(): Record<string, number> {
+    return { pipeline: 0, influxdb: 12 };
+  }
+
   unitIds(): string[] {
     return this.units.map((unit) => unit.id);
   }

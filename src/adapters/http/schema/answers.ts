@@ -58,6 +58,11 @@ const thermocoupleCountsSchema = z
 
 const scanCountsSchema = z.object({
   stores: z.record(z.string(), thermocoupleCountsSchema),
+  surprise: z
+    .record(z.string(), z.number())
+    .describe(
+      'By store, mean square of innovations over what was expected, lately; 1 = as expected',
+    ),
   implausible: z
     .array(z.object({ channel: z.string(), kind: z.enum(IMPLAUSIBLE_KINDS) }))
     .describe(
