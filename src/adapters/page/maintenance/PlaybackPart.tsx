@@ -156,25 +156,20 @@ function Played({
   );
 }
 
+/** The field keeps its own text: what stands in it when it is sent off is what counts. */
 function GoTo({ onGo }: { onGo(at_ms: number): void }) {
-  const [text, setText] = useState('');
+  const field = useRef<HTMLInputElement>(null);
   return (
     <form
       class="rock-go"
       onSubmit={(event) => {
         event.preventDefault();
-        const at_ms = new Date(text).getTime();
+        const at_ms = new Date(field.current?.value ?? '').getTime();
         if (Number.isFinite(at_ms)) onGo(at_ms);
       }}
     >
       <label for="playback-date">Date and time</label>
-      <input
-        id="playback-date"
-        type="datetime-local"
-        required
-        value={text}
-        onInput={(event) => setText(event.currentTarget.value)}
-      />
+      <input ref={field} id="playback-date" type="datetime-local" required />
       <button type="submit">Go there</button>
     </form>
   );
