@@ -189,9 +189,17 @@ export function fileReasonOf(thrown: unknown): string {
   return (typeof code === 'string' ? FILE_WORDS[code] : undefined) ?? reasonOf(thrown);
 }
 
-/** Replaces the user name and password of any URL in a text, which may go to a log or a screen. */
+/** Credentials by their form: in addresses and queries, in headers, tokens of rockhour itself. */
+const CREDENTIALS: readonly (readonly [RegExp, string])[] = [
+  [/([a-z][a-z0-9+.-]*:\/\/)[^\s/@]+@/gi, '$1***@'],
+  [/([?&](?:p|password|token|secret)=)[^&\s"']+/gi, '$1***'],
+  [/\b(Bearer|Basic) +[\w+/=.~-]{8,}/gi, '$1 ***'],
+  [/rockhour-[A-Za-z0-9_-]{43}/g, '***'],
+];
+
+/** Masks credentials of any of these forms in a text, which may go to a log or a screen. */
 export function withoutCredentials(text: string): string {
-  return text.replace(/([a-z][a-z0-9+.-]*:\/\/)[^\s/@]+@/gi, '$1***@');
+  return CREDENTIALS.reduce((left, [form, mask]) => left.replace(form, mask), text);
 }
 
 /** Without control characters other than line ends: a file must not write on the terminal. */
