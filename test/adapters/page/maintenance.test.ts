@@ -187,11 +187,11 @@ describe.skipIf(!chromium)('the rock sheet, in a real browser', { timeout: 60_00
     await page.waitForSelector(`${hot} .profile-line`);
     expect(await page.locator(`${hot} tr[data-string="A"] td`).allTextContents()).toEqual([
       '0.6',
-      '1.06 ± 0.01',
+      '1.06 ±\u00a00.01',
       '5.14',
       '0.55',
-      '5.00 ± 0.05',
-      '0.7 σ',
+      '5.00 ±\u00a00.05',
+      '0.7\u00a0σ',
     ]);
     const front = (id: string) =>
       page.locator(`${hot} g[data-string="${id}"] .front`).getAttribute('cx').then(Number);

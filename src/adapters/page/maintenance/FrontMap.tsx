@@ -5,7 +5,8 @@ import { frontsAt, gapsOf, secondsOf } from './moments.js';
 import type { Playback, PlayedMoment } from './wire.js';
 
 const LANE = 46;
-const GAP = 8;
+/** Above each lane, for its name. */
+const GAP = 18;
 const MODES = 9;
 const AXIS = 18;
 /** Half a thumb of the slider below: both have the same scale. */
@@ -35,7 +36,8 @@ export function FrontMap({
   const last = profiles.at(-1);
   const [from, to] = first && last ? [secondsOf(first), secondsOf(last)] : [0, 1];
   const x = (s: number) => INSET + ((s - from) / Math.max(1, to - from)) * (width - 2 * INSET);
-  const modesAt = stores.length * (LANE + GAP);
+  const topOf = (k: number) => GAP + k * (LANE + GAP);
+  const modesAt = topOf(stores.length) - GAP + 8;
   const height = modesAt + MODES + AXIS;
   const gaps = gapsOf(profiles, every_s);
   const choose = (event: PointerEvent) => {
@@ -56,13 +58,13 @@ export function FrontMap({
           onPointerMove={choose}
         >
           {stores.map((store, k) => (
-            <Lane key={store.id} store={store} top={k * (LANE + GAP)} right={width} />
+            <Lane key={store.id} store={store} top={topOf(k)} right={width} />
           ))}
           {stores.map((store, k) => (
             <path
               key={store.id}
               class="course"
-              d={courseOf(profiles, store, every_s, x, k * (LANE + GAP))}
+              d={courseOf(profiles, store, every_s, x, topOf(k))}
             />
           ))}
           <Modes profiles={profiles} every_s={every_s} x={x} top={modesAt} />
@@ -70,7 +72,7 @@ export function FrontMap({
             <g key={a} class="gap">
               <rect x={x(a)} width={x(b) - x(a)} height={modesAt + MODES} />
               {x(b) - x(a) > 84 && (
-                <text x={(x(a) + x(b)) / 2} y="14" text-anchor="middle">
+                <text x={(x(a) + x(b)) / 2} y={topOf(0) + LANE / 2} text-anchor="middle">
                   nothing stored
                 </text>
               )}
@@ -79,7 +81,7 @@ export function FrontMap({
           {ticksOf(from, to, width).map((s) => (
             <g key={s} class="tick">
               <path d={`M${x(s)},0 V${modesAt + MODES + 4}`} />
-              <text x={x(s)} y={height - 2} text-anchor="middle">
+              <text x={x(s)} y={height - 2} text-anchor={anchorAt(x(s), width)}>
                 {tickText(s)}
               </text>
             </g>
@@ -101,8 +103,8 @@ function Lane({ store, top, right }: { store: StoreDefinition; top: number; righ
       <path
         d={`M${INSET},${top + 0.5} H${right - INSET} M${INSET},${top + LANE - 0.5} H${right - INSET}`}
       />
-      <text x={INSET + 3} y={top + 13}>
-        {`${store.id}, top`}
+      <text x={INSET} y={top - 5}>
+        {`${store.id}, from its top down`}
       </text>
     </g>
   );
@@ -175,6 +177,14 @@ function Modes({
       )}
     </g>
   );
+}
+
+/** Half a word of a tick: where the edge is nearer, it stands beside its line. */
+const HALF_TICK = 18;
+
+function anchorAt(x: number, width: number): 'start' | 'middle' | 'end' {
+  if (x < HALF_TICK) return 'start';
+  return x > width - HALF_TICK ? 'end' : 'middle';
 }
 
 /** Whole hours or days of this browser's clock, as many as there is room for. */

@@ -53,8 +53,11 @@ export function PastBeds({
                 {moment === null ? '–' : bedWords(store, drawn)}
                 {own !== null && (
                   <>
-                    {`; charge ${percent(own.soc)} %, stored ${withSigma(own.stored_MWh_th, own.stored_sigma_MWh_th, 1)}`}
-                    <Unit name="MWh_th" />
+                    {`; charge ${percent(own.soc)} %, stored `}
+                    <span class="figure">
+                      {withSigma(own.stored_MWh_th, own.stored_sigma_MWh_th, 1)}
+                      <Unit name="MWh_th" />
+                    </span>
                   </>
                 )}
               </p>
@@ -97,8 +100,11 @@ function Heading({ moment }: { moment: ShownMoment | null }) {
         {flow_kg_s !== null && `; flow ${fixed(flow_kg_s, 1)} kg/s`}
         {power_MW_el !== null && (
           <>
-            {`; ${power_MW_el < 0 ? 'delivered' : 'drawn'} ${power(Math.abs(power_MW_el))}`}
-            <Unit name="MW_el" />
+            {`; ${power_MW_el < 0 ? 'delivered' : 'drawn'} `}
+            <span class="figure">
+              {power(Math.abs(power_MW_el))}
+              <Unit name="MW_el" />
+            </span>
           </>
         )}
       </p>

@@ -95,7 +95,7 @@ export function SensorsPart({
           </thead>
           <tbody>
             {shown.map((row) => (
-              <Row key={row.id} row={row} worth={answer !== null} />
+              <Row key={row.id} row={row} columns={answer === null ? 6 : 7} />
             ))}
           </tbody>
         </table>
@@ -133,32 +133,49 @@ function Head({
   );
 }
 
-function Row({ row, worth }: { row: SensorRow; worth: boolean }) {
+/** With the column of worth there are seven. On a phone the evidence has a line of its own. */
+function Row({ row, columns }: { row: SensorRow; columns: 6 | 7 }) {
   const { id, store, string, position_m, value_degC, apart_K, rise, repair } = row;
+  const evidence = evidenceOf(row);
   return (
-    <tr data-sensor={id} data-verdict={row.verdict ?? undefined}>
-      <th scope="row">{id}</th>
-      <td>{`${store}, ${string}`}</td>
-      <td class="number">{fixed(position_m, 2)}</td>
-      <td class="number">{fixed(value_degC, 1)}</td>
-      <td class="number">{fixed(apart_K, 1)}</td>
-      {worth && (
-        <td class="number">
-          {percent(rise, 1)}
-          {repair && ' repaired'}
+    <>
+      <tr data-sensor={id} data-verdict={row.verdict ?? undefined}>
+        <th scope="row">{id}</th>
+        <td>{`${store}, ${string}`}</td>
+        <td class="number">{fixed(position_m, 2)}</td>
+        <td class="number">{fixed(value_degC, 1)}</td>
+        <td class="number">{fixed(apart_K, 1)}</td>
+        {columns === 7 && (
+          <td class="number">
+            {percent(rise, 1)}
+            {repair && ' repaired'}
+          </td>
+        )}
+        <td>
+          {verdictOf(row)}
+          {evidence !== null && <span class="wide"> {evidence}</span>}
         </td>
+      </tr>
+      {evidence !== null && (
+        <tr class="narrow">
+          <td colSpan={columns}>{evidence}</td>
+        </tr>
       )}
-      <td>{verdictOf(row)}</td>
-    </tr>
+    </>
   );
 }
 
-function verdictOf({ verdict, since, evidence, value_degC }: SensorRow): ComponentChildren {
+function verdictOf({ verdict, value_degC }: SensorRow): ComponentChildren {
   if (verdict === null) return value_degC === null ? 'no reading now' : 'used';
+  return <strong class="rejected-word">{`× ${VERDICT_WORDS[verdict]}`}</strong>;
+}
+
+/** Since when, and why; null where it is used. */
+function evidenceOf({ verdict, since, evidence }: SensorRow): ComponentChildren {
+  if (verdict === null || (since === null && evidence === '')) return null;
   return (
     <>
-      <strong class="rejected-word">{`× ${VERDICT_WORDS[verdict]}`}</strong>
-      {since !== null && ` since ${dateClock(since)}`}
+      {since !== null && `since ${dateClock(since)}`}
       {evidence !== '' && <small class="evidence">{` ${evidence}`}</small>}
     </>
   );

@@ -64,11 +64,11 @@ function OneStore({
                 <tr key={id} data-string={id}>
                   <th scope="row">{id}</th>
                   <td>{fixed(radius_m, 1)}</td>
-                  <td>{withSigma(string?.flow_factor, string?.flow_factor_sigma, 2)}</td>
+                  <td>{beside(string?.flow_factor, string?.flow_factor_sigma)}</td>
                   <td>{fixed(string?.position_m, 2)}</td>
                   <td>{fixed(string?.width_m, 2)}</td>
                   <td>
-                    {withSigma(view?.position_m, view?.position_sigma_m, 2)}
+                    {beside(view?.position_m, view?.position_sigma_m)}
                     {view !== undefined && !view.seen && view.position_m !== null && ' predicted'}
                   </td>
                   <td>{apartWords(view)}</td>
@@ -82,8 +82,12 @@ function OneStore({
   );
 }
 
+/** Broken before the sign where there is no room, never after it. */
+const beside = (value: number | null | undefined, sigma: number | null | undefined) =>
+  withSigma(value, sigma, 2).replace('± ', '±\u00a0');
+
 /** How far the front view stands from the bed model, in sigmas of the difference. */
 function apartWords(view: StoreState['front_views'][number] | undefined): string {
   if (view === undefined || view.disagreement === null || !view.seen) return DASH;
-  return `${fixed(view.disagreement, 1)} σ`;
+  return `${fixed(view.disagreement, 1)}\u00a0σ`;
 }
