@@ -21,8 +21,11 @@ const ARGUMENTS = [
   '--disable-dev-shm-usage',
 ];
 
-export function openBrowser(executablePath: string): Promise<Browser> {
-  return chromium.launch({ executablePath, args: ARGUMENTS });
+export function openBrowser(
+  executablePath: string,
+  further: readonly string[] = [],
+): Promise<Browser> {
+  return chromium.launch({ executablePath, args: [...ARGUMENTS, ...further] });
 }
 
 /** Builds the page as it is shipped, into a folder of the test's own. */
