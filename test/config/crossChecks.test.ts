@@ -11,6 +11,43 @@ type Case = readonly [
 
 const CASES: readonly Case[] = [
   [
+    'late readings from before the journal',
+    'demo',
+    (_, site) => {
+      site.store = { keep_readings_days: 1, thin_after_days: 30 };
+    },
+    'late.rewind_h',
+    /at most store\.keep_readings_days \(1 d, which is 24 h\)/,
+  ],
+  [
+    'late readings of where estimates are thinned',
+    'demo',
+    (_, site) => {
+      site.late = { rewind_h: 100 };
+      site.store = { thin_after_days: 4 };
+    },
+    'late.rewind_h',
+    /at most store\.thin_after_days \(4 d, which is 96 h\)/,
+  ],
+  [
+    'states further apart than they are kept',
+    'demo',
+    (_, site) => {
+      site.late = { rewind_h: 0.5, rewind_point_every_s: 3600 };
+    },
+    'late.rewind_point_every_s',
+    /at most late\.rewind_h \(0\.5 h\)/,
+  ],
+  [
+    'a wait that is shorter than the quiet',
+    'demo',
+    (_, site) => {
+      site.late = { quiet_s: 60, wait_most_s: 30 };
+    },
+    'late.wait_most_s',
+    /at least late\.quiet_s \(60 s\)/,
+  ],
+  [
     'a thermocouple outside the bed',
     'demo',
     (u) => (u.stores[0].strings[0].positions_m[13] = 9.3),

@@ -25,6 +25,8 @@ export interface RewinderOptions {
   readonly log: Log;
   readonly entering: Entering;
   readonly rules: RewindRules;
+  /** Pause after a failure [ms]; without it 5 s. */
+  readonly retry_ms?: number;
   /** A runner of a unit without a past. */
   fresh(unit: UnitRunner['unit']): UnitRunner;
   /** Entries that the live units still have to work off. */
@@ -111,7 +113,7 @@ export class Rewinder {
       if (!isNew) return;
       counters.add('too_late');
       const time = new Date(time_ms).toISOString();
-      const reach = `${(rules.reach_ms / 3_600_000).toFixed(0)} h`;
+      const reach = `${rules.reach_ms / 3_600_000} h`;
       notices.warn(
         `too_late ${id}`,
         `unit ${id}: a reading of ${time} is older than the ${reach} of late.rewind_h: not used`,
@@ -318,7 +320,7 @@ export class Rewinder {
       `rewind_failures ${id}`,
       `unit ${id}: readings that came late could not be taken in, ${next}: ${reasonOf(thrown)}`,
     );
-    this.goOn(RETRY_MS);
+    this.goOn(this.options.retry_ms ?? RETRY_MS);
   }
 }
 

@@ -77,7 +77,7 @@ export class Rig {
       late: (runner, reading, isNew) => this.rewinder.note(runner, reading, isNew),
     });
     this.rewinder = new Rewinder({
-      ...{ ...common, ...tells, runners, entering, rules, fresh: make },
+      ...{ ...common, ...tells, runners, entering, rules, fresh: make, retry_ms: 20 },
       backlog: () => this.pipeline.backlog,
       isBusy: (runner) => this.pipeline.isBusy(runner),
     });
