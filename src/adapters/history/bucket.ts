@@ -56,3 +56,27 @@ export function unpackBucket(
     greatest: figures.subarray(2 * n),
   };
 }
+
+/** Some series of a layout, and their places in it. */
+export interface Picked {
+  readonly names: readonly string[];
+  readonly places: readonly number[];
+}
+
+/** Few series of a bucket, read where they stand: the rest of it is neither copied nor looked at. */
+export function pickFromBucket(
+  last_ms: number,
+  { names, places }: Picked,
+  content: Buffer,
+): SeriesPart {
+  const n = content.byteLength / (3 * 8 + 4);
+  const figures = (block: number) => places.map((i) => content.readDoubleLE(8 * (block * n + i)));
+  return {
+    time_ms: last_ms,
+    names,
+    counts: places.map((i) => content.readUInt32LE(3 * 8 * n + 4 * i)),
+    means: figures(0),
+    least: figures(1),
+    greatest: figures(2),
+  };
+}

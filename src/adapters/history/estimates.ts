@@ -187,7 +187,7 @@ export class Estimates {
       return { points: pointsOf(rows, wanted), bucket_ms: null };
     }
     const { bucket_ms, level } = stretchFor(from_ms, to_ms, points);
-    const parts = this.rollups.parts(unit, from_ms, to_ms + 1, level);
+    const parts = this.rollups.parts(unit, from_ms, to_ms + 1, level, wanted);
     return { points: thin(parts, bucket_ms, wanted), bucket_ms };
   }
 

@@ -1,5 +1,13 @@
 import type { Statement } from 'better-sqlite3';
-import { addToBucket, type Bucket, emptyBucket, packBucket, unpackBucket } from './bucket.js';
+import {
+  addToBucket,
+  type Bucket,
+  emptyBucket,
+  type Picked,
+  packBucket,
+  pickFromBucket,
+  unpackBucket,
+} from './bucket.js';
 import { ceilTo, floorTo, LEVELS_MS } from './buckets.js';
 import type { Database } from './database.js';
 import type { Layouts } from './layouts.js';
@@ -122,12 +130,14 @@ export class Rollups {
    *
    * @param level -1 = rows as they were stored
    * @param end_ms exclusive
+   * @param wanted series that are needed, null: all; a part may have others too
    */
   *parts(
     unit: string,
     from_ms: number,
     end_ms: number,
     level: number,
+    wanted: ReadonlySet<string> | null = null,
   ): IterableIterator<SeriesPart> {
     const rolled = level < 0 ? null : this.rolled(unit);
     const width_ms = LEVELS_MS[level];
@@ -138,12 +148,12 @@ export class Rollups {
     const first = Math.max(ceilTo(from_ms, width_ms), rolled.from);
     const last = floorTo(Math.min(end_ms, rolled.to), width_ms);
     if (first >= last) {
-      yield* this.parts(unit, from_ms, end_ms, level - 1);
+      yield* this.parts(unit, from_ms, end_ms, level - 1, wanted);
       return;
     }
-    if (from_ms < first) yield* this.parts(unit, from_ms, first, level - 1);
-    yield* this.stretches(unit, first, last, level);
-    if (last < end_ms) yield* this.parts(unit, last, end_ms, level - 1);
+    if (from_ms < first) yield* this.parts(unit, from_ms, first, level - 1, wanted);
+    yield* this.stretches(unit, first, last, level, wanted);
+    if (last < end_ms) yield* this.parts(unit, last, end_ms, level - 1, wanted);
   }
 
   private rolled(unit: string): Rolled | null {
@@ -242,7 +252,9 @@ export class Rollups {
     from_ms: number,
     end_ms: number,
     level: number,
+    wanted: ReadonlySet<string> | null = null,
   ): IterableIterator<NumberedPart> {
+    const picked = new Map<number, Picked>();
     const rows = this.database
       .prepare(
         `SELECT layout, last, content FROM ${TABLES[level]}
@@ -250,7 +262,13 @@ export class Rollups {
       )
       .iterate(unit, from_ms, end_ms) as IterableIterator<StoredBucket>;
     for (const { layout, last, content } of rows) {
-      yield { ...unpackBucket(last, this.layouts.of(layout), content), layout };
+      if (wanted === null) {
+        yield { ...unpackBucket(last, this.layouts.of(layout), content), layout };
+        continue;
+      }
+      const own = picked.get(layout) ?? pick(this.layouts.of(layout), wanted);
+      picked.set(layout, own);
+      yield { ...pickFromBucket(last, own, content), layout };
     }
   }
 }
@@ -265,6 +283,11 @@ interface StoredBucket {
   layout: number;
   last: number;
   content: Buffer;
+}
+
+function pick(names: readonly string[], wanted: ReadonlySet<string>): Picked {
+  const places = names.flatMap((name, i) => (wanted.has(name) ? [i] : []));
+  return { places, names: places.map((i) => names[i]!) };
 }
 
 /** Values of a row as they were stored. */

@@ -92,6 +92,12 @@ function expected(rows: readonly Row[], from_ms: number, to_ms: number, bucket_m
   });
 }
 
+/** A point with these series alone, and their extremes. */
+function only(point: object, names: readonly string[]): object {
+  const isTold = (key: string) => key === 'time' || names.includes(key.replace(/\.(min|max)$/, ''));
+  return Object.fromEntries(Object.entries(point).filter(([key]) => isTold(key)));
+}
+
 /**
  * Holds the history against all rows over some spans, of some numbers of points.
  *
@@ -112,6 +118,8 @@ function hold(history: History, rows: readonly Row[], isWhole = false): number[]
     const from_ms = isWhole ? floorTo(from, LEVELS_MS[0]) : from;
     const to_ms = isWhole ? ceilTo(to, LEVELS_MS[0]) - 1 : to;
     const { points: found, bucket_ms } = history.estimates.series('u', from_ms, to_ms, points);
+    const some = history.estimates.series('u', from_ms, to_ms, points, ['mode', 'flow_kg_s']);
+    expect(some.points).toEqual(found.map((point) => only(point, ['mode', 'flow_kg_s'])));
     const { level } = stretchFor(from_ms, to_ms, points);
     if (bucket_ms === null || (isWhole && level < 0)) continue;
     levels.push(level);
