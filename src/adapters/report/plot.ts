@@ -205,7 +205,7 @@ function labels(all: readonly PlotSeries[], y: ScaleLinear<number, number>): str
     if (above !== undefined) label.at = Math.max(label.at, above.at + 13);
   });
   const lowest = y.range()[0] as number;
-  for (let i = placed.length - 1, most = lowest + 4; i >= 0; i--, most -= 13) {
+  for (let i = placed.length - 1, most = lowest - 4; i >= 0; i--, most -= 13) {
     const label = placed[i] as { at: number };
     label.at = Math.min(label.at, most);
   }

@@ -38,7 +38,7 @@ svg .label{fill:var(--ink)}
 table{border-collapse:collapse;width:100%;font-size:.82rem;margin:.4rem 0}
 th,td{text-align:left;padding:.22rem .5rem .22rem 0;border-bottom:1px solid var(--rule);vertical-align:top}
 th{font-weight:600;border-bottom:1px solid var(--ink)}
-td.n,th.n{text-align:right}
+td.n,th.n{text-align:right;padding-left:.5rem}
 td.n{white-space:nowrap}
 th{vertical-align:bottom}
 tr{break-inside:avoid}
@@ -50,7 +50,7 @@ thead{display:table-header-group}
 .caution{border:1.5px solid var(--ink);padding:.6rem .9rem;margin:2rem 0 0;break-inside:avoid}
 .empty{color:var(--soft);font-style:italic}
 @page{size:A4;margin:16mm 14mm 18mm}
-@media print{html{font-size:10.2pt}body{max-width:none;padding:0}h2{break-after:avoid}h3{break-after:avoid}.wide{overflow:visible}table{font-size:8pt}th,td{padding-right:.3rem}.page{break-before:page}}
+@media print{html{font-size:10.2pt}body{max-width:none;padding:0}h2{break-after:avoid}h3{break-after:avoid}.wide{overflow:visible}table{font-size:8pt}th,td{padding-right:.3rem}td.n,th.n{padding-left:.35rem}.page{break-before:page}}
 `.trim();
 
 /** By which a browser's policy lets this one sheet through and no other. */

@@ -35,7 +35,7 @@ export function indicatorTable({ indicators }: ReportData): string {
     view.healthy === null
       ? '-'
       : `${short(view.healthy)} <span class="soft">${view.healthy_from ?? ''}</span>`,
-    `${short(view.limit)} ${text(view.unit)}`,
+    view.unit === '-' ? short(view.limit) : `${short(view.limit)} ${text(view.unit)}`,
     view.score === null ? '-' : percent(view.score),
   ]);
   const heads = [
@@ -56,9 +56,12 @@ function stateWords({ state, reason }: IndicatorView): string {
     : `${state} <span class="soft">${reason.replaceAll('_', ' ')}</span>`;
 }
 
+/** To two digits of the sigma. */
 function withSigma({ value, sigma }: IndicatorView): string {
   if (value === null) return '-';
-  return sigma === null ? short(value) : `${short(value)} +/- ${short(sigma)}`;
+  if (sigma === null || sigma === 0) return short(value);
+  const digits = Math.min(5, Math.max(0, 1 - Math.floor(Math.log10(sigma))));
+  return `${value.toFixed(digits)} +/- ${sigma.toFixed(digits)}`;
 }
 
 /** Three significant digits, as a plain number. */
