@@ -10,9 +10,12 @@ export class RockhourProcess {
   private readonly child: ChildProcess;
   private readonly exit: Promise<number | null>;
 
-  /** @param outlives true: it lives on after the test at hand, and whoever started it ends it */
-  constructor(args: readonly string[], outlives = false) {
-    this.child = startRockhour(args);
+  /**
+   * @param outlives true: it lives on after the test at hand, and whoever started it ends it
+   * @param through a program and its arguments that run it, such as strace
+   */
+  constructor(args: readonly string[], outlives = false, through: readonly string[] = []) {
+    this.child = startRockhour(args, {}, through);
     this.child.stdout?.on('data', (chunk: Buffer) => {
       this.stdout += chunk.toString();
     });

@@ -10,12 +10,18 @@ function nodeArguments(args: readonly string[]): string[] {
     : ['--import', 'tsx', 'src/main.ts', ...args];
 }
 
-/** Starts `rockhour ARGS` in the checkout, as a user would; the caller ends it. */
+/**
+ * Starts `rockhour ARGS` in the checkout, as a user would; the caller ends it.
+ *
+ * @param through a program and its arguments that run it, such as strace
+ */
 export function startRockhour(
   args: readonly string[],
   env: Readonly<Record<string, string>> = {},
+  through: readonly string[] = [],
 ): ChildProcess {
-  return spawn(process.execPath, nodeArguments(args), {
+  const [program, ...rest] = [...through, process.execPath, ...nodeArguments(args)];
+  return spawn(program!, rest, {
     cwd: root,
     stdio: ['ignore', 'pipe', 'pipe'],
     env: { ...process.env, ...env },

@@ -9,6 +9,7 @@ export const PROGRAMS = {
   mosquitto: { names: ['mosquitto'], package: 'mosquitto' },
   influxd: { names: ['influxd'], package: 'influxdb' },
   systemdAnalyze: { names: ['systemd-analyze'], package: 'systemd' },
+  strace: { names: ['strace'], package: 'strace' },
   chromium: { names: ['chromium', 'chromium-browser'], package: 'chromium' },
 } as const;
 export type ProgramName = keyof typeof PROGRAMS;

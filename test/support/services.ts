@@ -67,6 +67,14 @@ function accepts(port: number): Promise<boolean> {
   });
 }
 
+/** How a broker should keep what a subscriber has not taken yet, and where. */
+export interface BrokerOptions {
+  /** `default`: mosquitto's own limits, 20 in flight and 1000 queued. */
+  readonly limits?: 'raised' | 'default';
+  /** Folder of its own; a new one else. */
+  readonly folder?: string;
+}
+
 /**
  * mosquitto as a site would run it: nothing lost to a slow subscriber or to its own restart.
  * @param own further lines of its configuration, for its one listener
@@ -75,15 +83,16 @@ export async function startMosquitto(
   program: string,
   port?: number,
   own: readonly string[] = [],
+  options: BrokerOptions = {},
 ): Promise<Service> {
   const at = port ?? (await freePort());
-  const folder = temporaryFolder('mosquitto');
+  const folder = options.folder ?? temporaryFolder('mosquitto');
   const config = join(folder, 'mosquitto.conf');
   // Started by root, mosquitto would change to a user of its own, who may not write the folder.
   const lines = [
     `listener ${at} 127.0.0.1`,
     'allow_anonymous true',
-    'max_queued_messages 100000',
+    ...(options.limits === 'default' ? [] : ['max_queued_messages 100000']),
     'persistence true',
     `persistence_location ${folder}/`,
     'autosave_interval 1',
@@ -111,10 +120,10 @@ export async function startInflux(
   program: string,
   port?: number,
   own: readonly string[] = [],
+  folder = temporaryFolder('influx'),
 ): Promise<Service> {
   const at = port ?? (await freePort());
   const rpc = await freePort();
-  const folder = temporaryFolder('influx');
   const config = join(folder, 'influxdb.conf');
   const lines = [
     'reporting-disabled = true',
