@@ -73,6 +73,8 @@ export interface StoreConfig {
   readonly thin_after_days: number;
   readonly thin_to_s: number;
   readonly checkpoint_every_s: number;
+  /** Room on the disk below which the store is thinned early; absent or 0: never. */
+  readonly keep_free_MB?: number;
 }
 
 export interface HttpConfig {

@@ -11,7 +11,7 @@ describe.skipIf(!mosquitto)(
   "a broker with mosquitto's own limits (20 in flight, 1000 queued)",
   () => {
     it('loses nothing of a burst of 5000 messages while the daemon is there', async () => {
-      const service = await startMosquitto(mosquitto!, undefined, { limits: 'default' });
+      const service = await startMosquitto(mosquitto!, undefined, [], { limits: 'default' });
       later(() => service.stop());
       const site = smallSite(service.url);
       const daemon = makeDaemon(site);

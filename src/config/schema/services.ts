@@ -184,6 +184,12 @@ export const localStoreSchema = z.strictObject({
     'How often the state of the estimator is saved; the journal since is replayed at a start.',
     600,
   ).default(600),
+  keep_free_MB: key(
+    z.int().min(0).max(10_000_000),
+    'MB',
+    'Below so much room for the store it is thinned beyond what the ages above ask; 0 = never.',
+    200,
+  ).default(200),
 });
 
 const token = z.strictObject({
