@@ -14,11 +14,12 @@ import type { WatchEvent } from './core/watch/event.js';
 import { AlarmPart, DEFAULT_ALARMS } from './daemon/alarmPart.js';
 import { catchUp } from './daemon/catchUp.js';
 import { type DaemonClock, SteadyClock, wallClock } from './daemon/clock.js';
+import { ClockSteps } from './daemon/clockSteps.js';
 import { type Core, realCore } from './daemon/core.js';
 import { Counters } from './daemon/counters.js';
 import { DatabasePart } from './daemon/databasePart.js';
 import { Entering } from './daemon/entering.js';
-import { brokerHealth, storeHealth, unitHealth } from './daemon/health.js';
+import { brokerHealth, clockHealth, storeHealth, unitHealth } from './daemon/health.js';
 import { Hourly } from './daemon/hourly.js';
 import { Housekeeping } from './daemon/housekeeping.js';
 import { runnerMaker } from './daemon/makeRunners.js';
@@ -99,6 +100,8 @@ class RockhourDaemon implements Daemon {
   private readonly database: DatabasePart | null;
   private readonly notify: NotifyPart;
   private readonly housekeeping: Housekeeping;
+  /** null: the clock is not the machine's own. */
+  private readonly steps: ClockSteps | null;
   private readonly speaker: Speaker;
   /** What has been started, to be ended in reverse order. */
   private readonly ending: (() => void | Promise<void>)[] = [];
@@ -197,8 +200,11 @@ class RockhourDaemon implements Daemon {
       mqtt_prefix: site.mqtt.out_prefix,
       deliver: (topic, payload) => this.mqtt.deliver(topic, payload),
     });
+    const counted = () => performance.now();
+    this.steps = clock.isWall ? new ClockSteps(clock, counted, { counters, notices }) : null;
     this.housekeeping = new Housekeeping({
       ...common,
+      steps: this.steps,
       site,
       pipeline: this.pipeline,
       rewinder: this.rewinder,
@@ -371,6 +377,7 @@ class RockhourDaemon implements Daemon {
       storeHealth(folder, this.intake.stuck, pipeline.backlog, pipeline.trouble),
       ...(this.database ? [this.database.health] : []),
       ...this.notify.health,
+      ...(this.steps ? [clockHealth(clock.now(), this.steps.last)] : []),
       ...[...this.runners.values()].map((runner) =>
         unitHealth(runner, pipeline.failures.get(runner.unit.id), clock, future),
       ),

@@ -4,9 +4,11 @@ export interface DaemonClock {
   now(): number;
   /** About how much faster than the machine's own clock it runs; 0 where only readings move it. */
   readonly speed: number;
+  /** It is the machine's own, which somebody may set. */
+  readonly isWall?: boolean;
 }
 
-export const wallClock: DaemonClock = { now: () => Date.now(), speed: 1 };
+export const wallClock: DaemonClock = { now: () => Date.now(), speed: 1, isWall: true };
 
 /** A clock that starts at `start_ms` and runs `speed` times as fast as the machine's. */
 export function fastClock(start_ms: number, speed: number): DaemonClock {

@@ -16,6 +16,11 @@ const OWN_COUNTS = [
   'scans_skipped',
   /** Scans on which the estimator failed; it went on from its last sound state. */
   'scan_failures',
+  /** Readings that came while this machine's clock had lost its date: believed all the same. */
+  'machine_dateless',
+  /** Times that this machine's clock was set. */
+  'clock_set_forward',
+  'clock_set_back',
   /** Late readings that are in their scans since; whose scan has a value; that are too old to be used. */
   'late_used',
   'late_repeated',

@@ -1,7 +1,10 @@
 import type { InfluxForwarder } from '../adapters/history/influxForwarder.js';
 import type { Outbox } from '../adapters/history/outbox.js';
 import type { HealthPart } from '../adapters/http/service.js';
+import { LEAST_DATE_MS } from '../core/scan/assemble.js';
 import type { DaemonClock } from './clock.js';
+import { type ClockStep, stepWords } from './clockSteps.js';
+import { zoneWords } from './clockWords.js';
 import type { UnitRunner } from './unitRunner.js';
 
 export function brokerHealth(
@@ -49,6 +52,16 @@ export function databaseHealth(forwarder: InfluxForwarder, outbox: Outbox): Heal
   return { name: 'influxdb', ok: true, detail };
 }
 
+/** This machine's clock: its date, and whether it was set since the start. */
+export function clockHealth(now_ms: number, step: ClockStep | null): HealthPart {
+  const stands = new Date(now_ms).toISOString();
+  if (now_ms < LEAST_DATE_MS) {
+    const detail = `this machine's clock has lost its date, it stands at ${stands}: set it`;
+    return { name: 'clock', ok: false, detail };
+  }
+  return { name: 'clock', ok: true, detail: step === null ? 'was not set' : stepWords(step) };
+}
+
 export function unitHealth(
   runner: UnitRunner,
   failure: string | undefined,
@@ -59,7 +72,7 @@ export function unitHealth(
   if (failure !== undefined) return { name, ok: false, detail: `the last scan failed: ${failure}` };
   const ahead =
     future === 0 ? '' : `; ${future} readings stamped ahead of this machine's clock were not used`;
-  const told = `${ahead}${lostAtStart(runner.lost)}`;
+  const told = `${ahead}${zonesOff(runner.wrongZones)}${lostAtStart(runner.lost)}`;
   if (runner.newest_ms === null) return { name, ok: false, detail: `no reading yet${told}` };
   const age_s = Math.max(0, (clock.now() - runner.newest_ms) / 1000);
   const ok = age_s <= runner.unit.watch.data_age_s.limit;
@@ -68,6 +81,15 @@ export function unitHealth(
 
 /** Names told in full; the log has them all. */
 const NAMES_MOST = 3;
+
+function zonesOff(found: UnitRunner['wrongZones']): string {
+  if (found.length === 0) return '';
+  const more = found.length > NAMES_MOST ? `, and ${found.length - NAMES_MOST} more` : '';
+  const named = found.slice(0, NAMES_MOST).map(({ channel, hours }) => {
+    return `${channel} is ${zoneWords(hours)}`;
+  });
+  return `; not used: ${named.join(', ')}${more}`;
+}
 
 function lostAtStart(lost: readonly string[]): string {
   if (lost.length === 0) return '';

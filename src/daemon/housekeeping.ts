@@ -3,6 +3,7 @@ import type { Journal } from '../adapters/history/journal.js';
 import type { SiteConfig } from '../config/site.js';
 import { reasonOf } from '../errors.js';
 import type { DaemonClock } from './clock.js';
+import type { ClockSteps } from './clockSteps.js';
 import type { Counters } from './counters.js';
 import type { Notices } from './notices.js';
 import type { Pipeline } from './pipeline.js';
@@ -18,6 +19,8 @@ export interface HousekeepingOptions {
   readonly counters: Counters;
   readonly notices: Notices;
   readonly poll_ms: number;
+  /** null: the clock is not the machine's own. */
+  readonly steps: ClockSteps | null;
   /** Cursor of the forwarder; Infinity where there is none. */
   forwarded(): number;
 }
@@ -63,6 +66,7 @@ export class Housekeeping {
   }
 
   private closeDue(): void {
+    this.options.steps?.look();
     if (!this.mayClose) return;
     this.options.pipeline.closeDue();
     this.options.rewinder.poll();

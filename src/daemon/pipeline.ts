@@ -1,8 +1,10 @@
 import type { History } from '../adapters/history/history.js';
 import type { Journal, JournalEntry, ReadingEntry } from '../adapters/history/journal.js';
+import { isMachineDateless } from '../core/scan/assemble.js';
 import { reasonOf } from '../errors.js';
 import type { Log } from '../log.js';
 import type { DaemonClock, SteadyClock } from './clock.js';
+import { zoneWords } from './clockWords.js';
 import type { Counters } from './counters.js';
 import type { Entering } from './entering.js';
 import type { Notices } from './notices.js';
@@ -15,6 +17,9 @@ const SLICE_MS = 25;
 const PAGE = 512;
 /** After a failure to read the journal [ms]. */
 const RETRY_MS = 1000;
+
+/** What a person is told of besides the count. */
+const TOLD_FATES: readonly string[] = ['late', 'future', 'dateless', 'wrong_zone', 'unconfigured'];
 
 export interface PipelineOptions {
   readonly journal: Journal;
@@ -165,8 +170,11 @@ export class Pipeline {
     const fate = runner ? runner.take(entry, steady.now()) : 'unconfigured';
     if (fate !== null && isLive) {
       counters.add(fate);
-      if (fate === 'late' || fate === 'future' || fate === 'unconfigured') {
-        notices.warn(fate, describe(entry, fate));
+      if (TOLD_FATES.includes(fate)) notices.warn(fate, describe(entry, fate));
+      if (entry.kind === 'reading' && isMachineDateless(entry)) {
+        counters.add('machine_dateless');
+        const stands = new Date(entry.arrival_ms).toISOString();
+        notices.warn('machine_dateless', `this machine's clock stands at ${stands}: set it`);
       }
     }
     if (runner && fate === 'late' && entry.kind === 'reading')
@@ -231,6 +239,8 @@ function describe(entry: JournalEntry, fate: string): string {
   const why = {
     late: `came ${behind_s.toFixed(1)} s after its source time, when its scan was closed`,
     future: `is stamped ${(-behind_s).toFixed(1)} s ahead of this machine's clock`,
+    dateless: 'is of a clock that has lost its date: not used',
+    wrong_zone: `is ${zoneWords(-behind_s / 3600)}: not used`,
   }[fate];
   return `${entry.unit}, ${entry.channel}: the reading of ${time} ${why ?? 'has no such channel now'}`;
 }

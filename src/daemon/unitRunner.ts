@@ -15,6 +15,7 @@ import {
 import { voltageFinish } from '../core/scan/convert.js';
 import { PlantClock } from '../core/scan/plantClock.js';
 import type { Scan } from '../core/scan/scan.js';
+import { type ZoneState, ZoneWatch } from '../core/scan/zones.js';
 import type { ScanCounts } from '../core/scanCounts.js';
 import type { UnitSnapshot, UnitState, UnitStep } from '../core/unit.js';
 import type { UnitCarry } from '../core/unitCarry.js';
@@ -33,6 +34,8 @@ interface RunnerImage {
   readonly shape?: UnitShape;
   /** What this state has raised and not returned, as it was raised; absent as above. */
   readonly standing?: readonly WatchEvent[];
+  /** Absent as above. */
+  readonly zones?: ZoneState;
 }
 
 /** A state saved under another definition, to be taken over where the journal has come to its time. */
@@ -96,6 +99,7 @@ export class UnitRunner {
   lost: readonly string[] = [];
   /** What the state has raised and not returned, by id, as it was raised. */
   private raised = new Map<string, WatchEvent>();
+  private readonly zones: ZoneWatch;
 
   constructor(
     readonly unit: UnitDefinition,
@@ -106,6 +110,7 @@ export class UnitRunner {
     this.finish = voltageFinish(unit);
     this.assembler = new Assembler(unit, options, this.finish);
     this.state = core.startUnit(unit);
+    this.zones = new ZoneWatch(unit);
   }
 
   /** Last journal entry that is in the state. */
@@ -172,6 +177,7 @@ export class UnitRunner {
     this.assembler = assembler;
     this.taken_seq = checkpoint.journal_seq;
     this.raised = byId(image.standing ?? standing);
+    if (image.zones) this.zones.restore(image.zones);
     // A plant that stays silent from here on still sees its scans close.
     if (assembler.newest !== null) this.plantClock.observe(assembler.newest, steady_ms);
     // A core of a test may watch nothing.
@@ -210,6 +216,7 @@ export class UnitRunner {
       assembler: this.assembler.save(),
       shape: shapeOf(this.unit),
       standing: this.standing,
+      zones: this.zones.save(),
     };
     return { time_ms: this.state.time_ms, journal_seq: this.taken_seq, image };
   }
@@ -234,8 +241,32 @@ export class UnitRunner {
     if (channel === undefined) return 'unconfigured';
     const { time_ms, arrival_ms, value } = entry;
     const fate = this.assembler.add({ channel, time_ms, arrival_ms, value });
-    if (fate !== 'future') this.plantClock.observe(believedTime(entry), steady_ms);
+    if (fate !== 'future' && fate !== 'dateless')
+      this.plantClock.observe(believedTime(entry), steady_ms);
+    if (fate === 'late' || fate === 'future') {
+      const isOff = this.zones.look(channel, time_ms, arrival_ms, this.newest_ms);
+      return isOff ? 'wrong_zone' : fate;
+    }
+    if (fate !== 'dateless') this.zones.clear(channel);
     return fate;
+  }
+
+  /** Whether a reading is off by the whole hours by which its channel's clock was found to be off. */
+  isWrongZone({ channel: id, time_ms, arrival_ms }: ReadingEntry): boolean {
+    const channel = this.channelIndex.get(id);
+    return channel !== undefined && this.zones.isOff(channel, time_ms, arrival_ms, this.newest_ms);
+  }
+
+  /** The next readings may show that a channel's clock is off by whole hours. */
+  get isZoneInDoubt(): boolean {
+    return this.zones.isInDoubt;
+  }
+
+  /** Channels whose clock is off by whole hours, and by how many; positive: ahead. */
+  get wrongZones(): readonly { readonly channel: string; readonly hours: number }[] {
+    return this.zones.findings.map(({ channel, hours }) => {
+      return { channel: this.unit.channels[channel]!.id, hours };
+    });
   }
 
   /** Takes a reading in that came late, in its place by source time; its number is behind those taken. */

@@ -27,7 +27,8 @@ export interface AssemblerOptions {
  * that came before; it stands only where its scan has no newer one. `surplus`: its scan was closed
  * and had one of this channel already. `late`: its scan was closed without it. `carried`: its scan
  * was closed just before, but the channel reports by exception and this is the newest of it: it holds
- * from the next scan on. `future`: its source time lies beyond the tolerance.
+ * from the next scan on. `future`: its source time lies beyond the tolerance. `dateless`: its source
+ * has lost its date. `wrong_zone`: the clock of its source is off by whole hours, see ZoneWatch.
  */
 export const READING_FATES = [
   'taken',
@@ -37,15 +38,32 @@ export const READING_FATES = [
   'late',
   'carried',
   'future',
+  'dateless',
+  'wrong_zone',
 ] as const;
 export type ReadingFate = (typeof READING_FATES)[number];
 
+/**
+ * No clock stands before this but one that has lost its date and counts from 1970, 1980 or 2000 [ms];
+ * it is older than this program.
+ */
+export const LEAST_DATE_MS = Date.UTC(2020, 0, 1);
+
+type Stamps = Pick<Reading, 'time_ms' | 'arrival_ms'>;
+
+/** Whether this machine's clock had lost its date when a dated reading came: its word is then no measure. */
+export function isMachineDateless({ time_ms, arrival_ms }: Stamps): boolean {
+  return arrival_ms < LEAST_DATE_MS && time_ms >= LEAST_DATE_MS;
+}
+
+/** Whether a reading is stamped further ahead of its arrival than is believed. */
+export function isFuture(stamps: Stamps, tolerance_ms: number): boolean {
+  return stamps.time_ms > stamps.arrival_ms + tolerance_ms && !isMachineDateless(stamps);
+}
+
 /** What a reading tells of the plant's time: its source time, but never more than its arrival [ms]. */
-export function believedTime({
-  time_ms,
-  arrival_ms,
-}: Pick<Reading, 'time_ms' | 'arrival_ms'>): number {
-  return Math.min(time_ms, arrival_ms);
+export function believedTime(stamps: Stamps): number {
+  return isMachineDateless(stamps) ? stamps.time_ms : Math.min(stamps.time_ms, stamps.arrival_ms);
 }
 
 /** Why a scan was closed: all periodic channels had spoken, or its time was over. */
@@ -160,7 +178,8 @@ export class Assembler {
     if (!Number.isSafeInteger(time_ms)) {
       throw new RangeError(`reading.time_ms must be whole milliseconds, got ${time_ms}`);
     }
-    if (time_ms > reading.arrival_ms + this.options.future_tolerance_ms) return 'future';
+    if (isFuture(reading, this.options.future_tolerance_ms)) return 'future';
+    if (time_ms < LEAST_DATE_MS && reading.arrival_ms >= LEAST_DATE_MS) return 'dateless';
     const index = Math.floor(time_ms / this.period_ms);
     const believed_ms = believedTime(reading);
     const isFast = time_ms - believed_ms > this.period_ms;

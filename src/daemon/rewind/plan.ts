@@ -2,6 +2,7 @@ import type { StoredCheckpoint } from '../../adapters/history/checkpoints.js';
 import type { History } from '../../adapters/history/history.js';
 import type { Journal } from '../../adapters/history/journal.js';
 import type { LateReading } from '../../adapters/history/lateReadings.js';
+import { isFuture } from '../../core/scan/assemble.js';
 import type { UnitRunner } from '../unitRunner.js';
 import { Gaps } from './gaps.js';
 
@@ -27,6 +28,8 @@ export interface RewindPlan {
   readonly repeated: number;
   /** From before the oldest state that can be gone back to. */
   readonly too_late: number;
+  /** Off by the whole hours by which their channel was found to be off since. */
+  readonly wrong_zone: number;
 }
 
 /**
@@ -45,7 +48,7 @@ export function* planRewind(
   const period_ms = unit.scan_period_s * 1000;
   let too_late = 0;
   const first = history.late.waiting(unit.id, through_seq);
-  if (first === null) return { start: null, used: 0, repeated: 0, too_late };
+  if (first === null) return { start: null, used: 0, repeated: 0, too_late, wrong_zone: 0 };
   let back = goBack(live, first.oldest_ms, parts);
   // From before all states that there are: the rest may yet be of use.
   const oldest = back === null ? history.rewindPoints.oldest(unit) : null;
@@ -64,11 +67,12 @@ export function* planRewind(
     for (const { time_ms } of page) if (time_ms >= reach_ms) gaps.expect(time_ms);
     yield;
   }
-  if (back === null) return { start: null, used: 0, repeated: 0, too_late };
+  if (back === null) return { start: null, used: 0, repeated: 0, too_late, wrong_zone: 0 };
   const waiting = waitingIn(history, unit.id, through_seq);
   let head = waiting.next().value;
   const useless: LateReading[] = [];
   let used = 0;
+  let wrong_zone = 0;
   let oldest_ms = Number.POSITIVE_INFINITY;
   for (let seq = back.runner.seq; seq < through_seq; ) {
     const { entries, seq: reached } = parts.journal.readUnit(
@@ -77,12 +81,15 @@ export function* planRewind(
     seq = reached;
     for (const entry of entries) {
       if (entry.kind === 'close') continue;
-      const { time_ms, arrival_ms } = entry;
+      const { time_ms } = entry;
       const channel = live.channelOf(entry.channel);
       const isWaiting = head?.seq === entry.seq;
       if (isWaiting) head = waiting.next().value;
-      if (channel === undefined || time_ms > arrival_ms + parts.future_tolerance_ms) {
+      if (channel === undefined || isFuture(entry, parts.future_tolerance_ms)) {
         if (isWaiting) useless.push({ time_ms, seq: entry.seq });
+      } else if (isWaiting && live.isWrongZone(entry)) {
+        useless.push({ time_ms, seq: entry.seq });
+        wrong_zone++;
       } else if (!isWaiting) gaps.fill(channel, time_ms, entry.value);
       else if (!gaps.isOfUse(channel, time_ms, entry.value))
         useless.push({ time_ms, seq: entry.seq });
@@ -94,10 +101,10 @@ export function* planRewind(
     yield;
   }
   history.late.drop(unit.id, useless);
-  const repeated = useless.length;
-  if (used === 0) return { start: null, used, repeated, too_late };
+  const repeated = useless.length - wrong_zone;
+  if (used === 0) return { start: null, used, repeated, too_late, wrong_zone };
   const start = goBack(live, oldest_ms, parts) ?? back;
-  return { start, used, repeated, too_late };
+  return { start, used, repeated, too_late, wrong_zone };
 }
 
 /**

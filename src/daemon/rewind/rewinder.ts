@@ -133,16 +133,20 @@ export class Rewinder {
     const { runners, steady, rules, entering, backlog } = this.options;
     if (backlog() > MOST_BEHIND) return;
     const now = steady.now();
-    const isDue = ({ first_ms, last_ms }: Waiting) =>
-      now - last_ms >= rules.quiet_ms || now - first_ms >= rules.wait_ms;
+    // What may be of a clock that is off by hours is no late reading.
+    const inDoubt = runners.filter((one) => one.isZoneInDoubt).map(({ unit }) => unit.id);
+    const isDue = (unit: string, { first_ms, last_ms }: Waiting) =>
+      (now - last_ms >= rules.quiet_ms && !inDoubt.includes(unit)) ||
+      now - first_ms >= rules.wait_ms;
     const [due] = [...this.waiting]
-      .filter(([, waiting]) => isDue(waiting))
+      .filter(([unit, waiting]) => isDue(unit, waiting))
       .sort(([, a], [, b]) => a.first_ms - b.first_ms);
     const runner = due && runners.find(({ unit }) => unit.id === due[0]);
     // A state that is to be taken over first comes to its time within the journal.
     if (!runner?.isSettled || !entering.flushLate(runner.unit.id)) return;
     this.waiting.delete(runner.unit.id);
-    this.job = { runner, work: this.rewind(runner) };
+    // Those that are noted by now: what comes until the work begins is the next one's.
+    this.job = { runner, work: this.rewind(runner, runner.seq) };
     this.goOn(0);
   }
 
@@ -196,15 +200,18 @@ export class Rewinder {
   }
 
   /** All of a rewind but the last, which is done when its transaction is. */
-  private *rewind(live: UnitRunner): Generator<'more' | 'wait', Outcome | null> {
+  private *rewind(
+    live: UnitRunner,
+    through_seq: number,
+  ): Generator<'more' | 'wait', Outcome | null> {
     const { journal, history, rules, fresh, isBusy } = this.options;
     const { unit } = live;
-    const through_seq = live.seq;
     const parts = { journal, history, fresh: () => fresh(unit), ...rules };
     const planning = planRewind(live, through_seq, parts);
     let planned = planning.next();
     for (; !planned.done; planned = planning.next()) yield 'more';
-    const { start, used, repeated, too_late } = planned.value;
+    const { start, used, repeated, too_late, wrong_zone } = planned.value;
+    this.options.counters.add('wrong_zone', wrong_zone);
     this.tellUseless(unit.id, repeated, too_late);
     if (start === null) {
       history.late.take(unit.id, through_seq);
@@ -307,7 +314,8 @@ export class Rewinder {
     this.failures.set(id, times);
     const now = steady.now();
     let next = 'tries again';
-    if (times < MOST_FAILURES || isStoreTrouble(thrown))
+    const isNoted = this.options.entering.flushLate(id);
+    if (times < MOST_FAILURES || isStoreTrouble(thrown) || !isNoted)
       this.waiting.set(id, { first_ms: now, last_ms: now });
     else {
       const lost = history.late.waiting(id, runner.seq)?.count ?? 0;

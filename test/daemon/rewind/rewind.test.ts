@@ -33,8 +33,8 @@ function scans(from: number, to: number, unit = 'u'): JournalReading[] {
   }).flat();
 }
 
-/** As they come hours later. */
-function late(readings: readonly JournalReading[], hours = 2): JournalReading[] {
+/** As they come hours later; whole hours might be another time zone. */
+function late(readings: readonly JournalReading[], hours = 2.3): JournalReading[] {
   const newest = Math.max(...readings.map(({ time_ms }) => time_ms));
   return readings.map((one) => ({ ...one, arrival_ms: newest + hours * HOUR }));
 }

@@ -116,11 +116,11 @@ export class Rig {
   }
 
   /** Late readings have settled: they are taken in. */
-  async settle(unit = 'u'): Promise<void> {
+  async settle(unit = 'u', limit_ms = 10_000): Promise<void> {
     this.steady_ms += 31_000;
     this.rewinder.poll();
-    await waitFor('the rewind', () => this.rewinder.busyWith === null);
-    if (this.rewinder.isAwaited(unit)) await this.settle(unit);
+    await waitFor('the rewind', () => this.rewinder.busyWith === null, limit_ms);
+    if (this.rewinder.isAwaited(unit)) await this.settle(unit, limit_ms);
   }
 
   get runner(): UnitRunner {
