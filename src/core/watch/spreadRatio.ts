@@ -80,8 +80,12 @@ function twinEnergyPosition(model: TwinModel, enthalpy: Float64Array): number {
 /** Twin's width squared at a place `ahead` of it along the present flow; null beyond first order. */
 function carriedSquare(state: TwinState, square: number, ahead: number): number | null {
   const growth = square - state.startWidth_m2;
-  if (state.travelled_m > 0 && Math.abs(ahead) <= 0.5 * state.travelled_m)
-    return square + (growth * ahead) / state.travelled_m;
+  if (state.travelled_m > 0 && Math.abs(ahead) <= 0.5 * state.travelled_m) {
+    const carried = square + (growth * ahead) / state.travelled_m;
+    // A twin that is much narrower than it began (the start's front has left, another is nearest) says
+    // nothing of growth: carried on, its square would fall below zero.
+    return carried >= 0.5 * square ? carried : null;
+  }
   // Next to nothing travelled, and next to nothing apart: nothing to carry.
   return Math.abs(ahead) <= 0.1 * Math.sqrt(square) ? square : null;
 }

@@ -1,3 +1,4 @@
+import * as fc from 'fast-check';
 import { describe, expect, it } from 'vitest';
 import { createBedWork, stepBed } from '../../../src/core/bed/kernel.js';
 import { buildBedTables, enthalpyAt, temperatureAt } from '../../../src/core/bed/tables.js';
@@ -232,5 +233,46 @@ describe('healthy twin', () => {
     expect(bad({ mean_K: new Float64Array(7) })).toThrow(/mean_K has 7 cells/);
     expect(bad({ dt_s: 0 })).toThrow(/dt_s.*0/);
     expect(bad({ unknownTravel_m: -1 })).toThrow(/unknownTravel_m.*-1/);
+  });
+});
+
+describe('the spread ratio', () => {
+  it('is a number or nothing, whatever the twin began with and wherever it has gone', () => {
+    const length_m = store.bed.length_m;
+    const share = fc.double({ min: 0, max: 1, noNaN: true });
+    let told = 0;
+    let nothing = 0;
+    fc.assert(
+      fc.property(share, share, share, share, share, (place, width, start, way, apart) => {
+        const twin_m = length_m * (0.3 + 0.4 * place);
+        const enthalpy = model.x_m.map((at) => {
+          const u = (at - twin_m) / (length_m * (0.01 + 0.1 * width));
+          return enthalpyAt(tables, COLD + (HOT - COLD) / (1 + Math.exp(4 * u)));
+        });
+        const state: TwinState = {
+          ...startTwin(),
+          enthalpy,
+          travelled_m: length_m * way,
+          startWidth_m2: (length_m * start) ** 2,
+          startWidthVariance_m4: 0.01,
+          lost: false,
+        };
+        const front = {
+          position_m: twin_m + 0.3 * length_m * (apart - 0.5),
+          width_m: 0.9,
+          width_sigma_m: 0.02,
+        };
+        const found = spreadRatio(model, state, [front], 1);
+        if (found === null) nothing++;
+        else {
+          told++;
+          expect(found.ratio).toBeGreaterThan(0);
+          expect(found.sigma).toBeGreaterThan(0);
+        }
+      }),
+      { numRuns: 2000 },
+    );
+    expect(told).toBeGreaterThan(50);
+    expect(nothing).toBeGreaterThan(50);
   });
 });
