@@ -36,8 +36,11 @@ export function Player({
 
   const step = (way: -1 | 1): boolean => {
     const next = neighbour(profiles, now.current, way);
-    if (next !== null) onChoose(secondsOf(next));
-    return next !== null;
+    if (next === null) return false;
+    // The next key may come before this one is drawn.
+    now.current = secondsOf(next);
+    onChoose(now.current);
+    return true;
   };
   const latest = useRef(step);
   latest.current = step;
