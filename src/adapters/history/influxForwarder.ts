@@ -3,8 +3,8 @@ import { request as askSecurely, type RequestOptions } from 'node:https';
 import { InfluxDB, type IPoint, type IPoolOptions } from 'influx';
 import type { InfluxConfig } from '../../config/site.js';
 import { reasonOf, withoutCredentials } from '../../errors.js';
-import { pointsOf } from './influxPoints.js';
-import type { Outbox } from './outbox.js';
+import { pointsOf, withdrawalOf } from './influxPoints.js';
+import type { Outbox, Withdrawal } from './outbox.js';
 
 export const FORWARDER_COUNTS = [
   'influx_points',
@@ -117,6 +117,14 @@ export class InfluxForwarder {
     let points: IPoint[] = [];
     let seq = outbox.cursor;
     for (const item of items) {
+      if (item.kind === 'withdrawal') {
+        // What was entered before it is to be there, and gone with it.
+        if (points.length === 0 && seq === outbox.cursor) {
+          await this.withdraw(influx, item);
+          seq = item.seq;
+        }
+        break;
+      }
       const next = pointsOf(item);
       if (points.length > 0 && points.length + next.length > this.options.config.batch_points) {
         break;
@@ -130,6 +138,21 @@ export class InfluxForwarder {
     outbox.moveTo(seq);
     this.options.count('influx_points', points.length);
     return true;
+  }
+
+  /** Deletes what was made again since; what the server will not delete is told, as points are. */
+  private async withdraw(influx: InfluxDB, item: Withdrawal): Promise<void> {
+    try {
+      // The client asks by GET, which InfluxDB 1.x follows with a warning.
+      await influx.query(withdrawalOf(item), { database: this.options.config.database });
+    } catch (thrown) {
+      const reason = complaintOf(thrown);
+      // Before the first point there is no database, and nothing to be deleted.
+      if (/database not found/.test(reason)) return;
+      if (statusOf(thrown) !== 400 && !/Error from InfluxDB/.test(reason)) throw thrown;
+      this.options.count('influx_set_aside', 1);
+      this.options.refused(withoutCredentials(reason));
+    }
   }
 
   /** @returns the points that were written; the others were refused for good */

@@ -2,7 +2,7 @@ import type { IPoint } from 'influx';
 import { ZERO_CELSIUS_K } from '../../core/units.js';
 import type { CycleRecord } from '../../core/watch/cycleRecord.js';
 import { cycleView } from '../../core/watch/cycleView.js';
-import type { OutboxItem } from './outbox.js';
+import type { OutboxItem, Withdrawal } from './outbox.js';
 
 /**
  * What rockhour writes to InfluxDB 1.x. All fields are floats but those marked (string); a field
@@ -33,7 +33,7 @@ import type { OutboxItem } from './outbox.js';
  *   thermocouples_rejected, and at a quarter, half and three quarters of the length width_25_m,
  *   spread_ratio_25, width_50_m and so on
  */
-export function pointsOf(item: OutboxItem): IPoint[] {
+export function pointsOf(item: Exclude<OutboxItem, Withdrawal>): IPoint[] {
   const timestamp = new Date(item.time_ms);
   const point = (measurement: string, tags: Tags, fields: Fields): IPoint[] => {
     const known = Object.entries(fields).filter(([, value]) => isWritable(value));
@@ -57,6 +57,20 @@ export function pointsOf(item: OutboxItem): IPoint[] {
         ...{ energy_p10_MWh_el: energy.p10, ends_by },
       },
     ),
+  );
+}
+
+/**
+ * The statement that deletes what a unit's scans have brought in a span. A scan that is made again may
+ * lie some milliseconds elsewhere, and a front or a verdict less is no point that another overwrites.
+ * What was told (events, hours) stays.
+ */
+export function withdrawalOf({ unit, content }: Withdrawal): string {
+  const [from, to] = [content.from, content.to].map((time) => `${Date.parse(time)}ms`);
+  const name = unit.replace(/[\\']/g, '\\$&');
+  return (
+    'DELETE FROM /^rockhour_(unit|store|front|string|sensor|cycle)$/ ' +
+    `WHERE "unit" = '${name}' AND time >= ${from} AND time <= ${to}`
   );
 }
 

@@ -30,7 +30,18 @@ export type OutboxItem =
       /** The end of the run. */
       readonly time_ms: number;
       readonly content: CycleRecord;
-    };
+    }
+  | Withdrawal;
+
+/** What was forwarded of a unit's scans in a span is void: what holds there follows. */
+export interface Withdrawal {
+  readonly kind: 'withdrawal';
+  readonly seq: number;
+  readonly unit: string;
+  readonly time_ms: number;
+  /** ISO 8601 UTC, both within the span. */
+  readonly content: { readonly from: string; readonly to: string };
+}
 
 interface Row {
   kind: OutboxItem['kind'];
@@ -66,7 +77,8 @@ export class Outbox {
       .prepare(
         `${part('estimate', 'estimates')} UNION ALL ${part('dispatch', 'dispatch')}
          UNION ALL ${part('event', 'events')}
-         UNION ALL ${part('cycle', 'cycles')} ORDER BY seq LIMIT @most`,
+         UNION ALL ${part('cycle', 'cycles')} UNION ALL ${part('withdrawal', 'withdrawals')}
+         ORDER BY seq LIMIT @most`,
       )
       .all({ cursor, most }) as Row[];
     return rows.map(
@@ -82,7 +94,8 @@ export class Outbox {
         `SELECT (SELECT count(*) FROM estimates WHERE seq > @cursor)
            + (SELECT count(*) FROM dispatch WHERE seq > @cursor)
            + (SELECT count(*) FROM events WHERE seq > @cursor)
-           + (SELECT count(*) FROM cycles WHERE seq > @cursor)`,
+           + (SELECT count(*) FROM cycles WHERE seq > @cursor)
+           + (SELECT count(*) FROM withdrawals WHERE seq > @cursor)`,
       )
       .pluck()
       .get({ cursor: this.cursor }) as number;

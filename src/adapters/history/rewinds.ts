@@ -39,8 +39,9 @@ export class Rewinds {
    * is entered behind it.
    */
   withdraw(unit: string, from_ms: number, to_ms: number): void {
+    const [from, to] = [from_ms, to_ms].map((time_ms) => new Date(time_ms).toISOString());
     this.database
-      .prepare('INSERT INTO withdrawals (seq, unit, "from", time) VALUES (?, ?, ?, ?)')
-      .run(this.sequence.next++, unit, from_ms, to_ms);
+      .prepare('INSERT INTO withdrawals (seq, unit, time, json) VALUES (?, ?, ?, ?)')
+      .run(this.sequence.next++, unit, to_ms, JSON.stringify({ from, to }));
   }
 }

@@ -114,5 +114,5 @@ export const HISTORY_SCHEMA = [
      time INTEGER NOT NULL, json TEXT NOT NULL);
    CREATE INDEX rewinds_by_time ON rewinds (unit, time);
    CREATE TABLE withdrawals (
-     seq INTEGER PRIMARY KEY, unit TEXT NOT NULL, "from" INTEGER NOT NULL, time INTEGER NOT NULL);`,
+     seq INTEGER PRIMARY KEY, unit TEXT NOT NULL, time INTEGER NOT NULL, json TEXT NOT NULL);`,
 ];

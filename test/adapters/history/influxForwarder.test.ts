@@ -60,6 +60,43 @@ async function select(url: string, query: string): Promise<unknown[][]> {
 }
 
 describe.skipIf(!influxd)('the forwarder, against a real InfluxDB', () => {
+  it('deletes what a rewind has made void, and writes what holds there', async () => {
+    const influx = await startInflux(influxd!);
+    ending.push(() => influx.stop());
+    const { history, counts, told, make } = setUp(influx.url);
+    // Nothing to be deleted yet, and no database.
+    history.rewinds.withdraw('u', T, T + 1);
+    fill(history, 0, 4);
+    history.events.add(event(T + 60_000, 'raised'));
+    make();
+    await waitFor('the backlog to go', () => history.outbox.backlog === 0);
+    history.write(() => {
+      const past = history.past(unit, T + 30_000);
+      for (const i of [1, 2]) {
+        const again = estimate(T + i * 30_000 + 5, i / 10);
+        again.stores.hot!.fronts = [];
+        past.enter(
+          { estimate: again, measured: NOTHING, profile: null },
+          T + (i + 1) * 30_000,
+          T + 90_000,
+        );
+      }
+      past.end();
+    });
+    await waitFor('the backlog to go', () => history.outbox.backlog === 0);
+    const units = await select(influx.url, 'SELECT state_of_charge, revision FROM rockhour_unit');
+    expect(units).toEqual([
+      [T, 0, 0],
+      [T + 30_005, 0.1, 1],
+      [T + 60_005, 0.2, 1],
+    ]);
+    // A front that is not there any more leaves no point; events stay, as they were told.
+    expect(await select(influx.url, 'SELECT position_m FROM rockhour_front')).toEqual([[T, 3]]);
+    expect(await select(influx.url, 'SELECT value FROM rockhour_event')).toHaveLength(1);
+    expect(told).toEqual([]);
+    expect(counts.influx_set_aside).toBeUndefined();
+  });
+
   it('creates the database and writes estimates, answers and events as documented', async () => {
     const influx = await startInflux(influxd!);
     ending.push(() => influx.stop());
