@@ -33,6 +33,7 @@ import { Questions } from './daemon/questions.js';
 import { Rewinder } from './daemon/rewind/rewinder.js';
 import { rewindRules } from './daemon/rewind/rules.js';
 import { Speaker } from './daemon/speaker.js';
+import { StorePart } from './daemon/storePart.js';
 import type { RunnerStep, UnitRunner } from './daemon/unitRunner.js';
 import type { Log } from './log.js';
 
@@ -102,6 +103,7 @@ class RockhourDaemon implements Daemon {
   private readonly housekeeping: Housekeeping;
   /** null: the clock is not the machine's own. */
   private readonly steps: ClockSteps | null;
+  private readonly store: StorePart;
   private readonly speaker: Speaker;
   /** What has been started, to be ended in reverse order. */
   private readonly ending: (() => void | Promise<void>)[] = [];
@@ -121,9 +123,18 @@ class RockhourDaemon implements Daemon {
     this.access = new Access(site.http.tokens);
     this.clock = clock;
     const { folder } = site.store;
-    const journal = new Journal(join(folder, 'journal.sqlite'));
     const alarmsConfig = site.alarms ?? DEFAULT_ALARMS;
-    const history = new History(join(folder, 'history.sqlite'), site.store, alarmsConfig);
+    const history: History = new History(
+      join(folder, 'history.sqlite'),
+      site.store,
+      alarmsConfig,
+      (what) => this.store.damaged('history', what),
+    );
+    const journal = new Journal(
+      join(folder, 'journal.sqlite'),
+      () => history.journalReach,
+      (what) => this.store.damaged('journal', what),
+    );
     this.journal = journal;
     this.history = history;
     this.questions = new Questions(core, sourceOf(options.configPath));
@@ -202,6 +213,13 @@ class RockhourDaemon implements Daemon {
     });
     const counted = () => performance.now();
     this.steps = clock.isWall ? new ClockSteps(clock, counted, { counters, notices }) : null;
+    this.store = new StorePart({
+      ...{ ...common, site },
+      trouble: () => (this.intake.stuck ? 'the journal refuses readings' : entering.trouble),
+      retry: () => entering.retry(),
+      forwarded: () => this.database?.cursor ?? Number.POSITIVE_INFINITY,
+      event: (event) => this.alarms.event(event),
+    });
     this.housekeeping = new Housekeeping({
       ...common,
       steps: this.steps,
@@ -268,13 +286,14 @@ class RockhourDaemon implements Daemon {
       () => mqtt.startBroker(),
       () => mqtt.stopBroker(),
     );
-    await this.begin(
-      () => journal.start(),
-      () => journal.stop(),
-    );
+    // Before the journal: a damaged journal goes on behind what the saved states know of.
     await this.begin(
       () => history.start(),
       () => history.stop(),
+    );
+    await this.begin(
+      () => journal.start(),
+      () => journal.stop(),
     );
     this.ending.push(() => this.questions.stop());
     this.ending.push(() => this.speaker.stop());
@@ -289,6 +308,10 @@ class RockhourDaemon implements Daemon {
     await this.begin(
       () => this.alarms.start(),
       () => this.alarms.stop(),
+    );
+    await this.begin(
+      () => this.store.start(),
+      () => this.store.stop(),
     );
     const url = this.options.http === false ? null : await this.startHttp();
     if (database) {

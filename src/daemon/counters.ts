@@ -64,6 +64,10 @@ const OWN_COUNTS = [
   'questions',
   'offers_kept',
   'offers_removed',
+  /** Rows that went before their time, since the disk was nearly full. */
+  'rows_thinned_early',
+  /** Damaged files of the store that were set aside. */
+  'stores_set_aside',
   'estimates_thinned',
   'estimates_not_forwarded',
 ] as const;

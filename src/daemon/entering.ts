@@ -1,6 +1,6 @@
 import type { History } from '../adapters/history/history.js';
 import type { LateReading } from '../adapters/history/lateReadings.js';
-import type { WatchEvent } from '../core/watch/event.js';
+import { isOfTheMachine, type WatchEvent } from '../core/watch/event.js';
 import { reasonOf } from '../errors.js';
 import type { Counters } from './counters.js';
 import type { Notices } from './notices.js';
@@ -8,6 +8,8 @@ import type { RunnerStep, UnitRunner } from './unitRunner.js';
 
 /** Events kept while the history cannot be written; what is beyond is counted as lost. */
 const MOST_UNSTORED = 10_000;
+/** Steps kept while the history cannot be written; with so many the journal is not worked off further. */
+const MOST_WAITING = 500;
 /** Late readings that are noted together at the latest, and most kept while they cannot be. */
 const NOTE_TOGETHER = 500;
 const MOST_UNNOTED = 200_000;
@@ -34,6 +36,8 @@ export class Entering {
   private readonly nextPoint = new Map<string, number>();
   private readonly unnoted = new Map<string, LateReading[]>();
   private storeTrouble: string | null = null;
+  /** Steps told while the history could not be written: no saved state is stored before them. */
+  private waiting: { readonly runner: UnitRunner; readonly step: RunnerStep }[] = [];
   /** Events told while the history could not be written, in their order. */
   private unstored: WatchEvent[] = [];
 
@@ -46,35 +50,74 @@ export class Entering {
 
   enter(runner: UnitRunner, step: RunnerStep): void {
     const { history, counters, stepped, event, alarmsMoved } = this.options;
-    const { estimate, profile, events, cycle, watch } = step.step;
+    const { estimate, events } = step.step;
     const time_ms = Date.parse(estimate.time);
     try {
       const news = history.write(() => {
-        const isNew = history.estimates.add(runner.unit, estimate, step.measured);
-        if (profile) history.profiles.add(profile);
-        if (cycle) history.cycles.add(cycle);
-        if (watch) history.watch.add(watch);
-        // A scan that is known, as in a replay after a restart, has moved its alarms already.
-        const moved = isNew && history.alarms.scan(runner.unit.id, estimate.mode, time_ms);
+        // What waited comes first: the order of what is forwarded.
+        for (const one of this.waiting) this.put(one.runner, one.step);
+        const { isNew, moved } = this.put(runner, step);
         const late = this.unstored.filter((one) => history.events.add(one));
         this.keepPoint(runner, time_ms);
         return { isNew, moved, late, events: events.filter((one) => history.events.add(one)) };
       });
-      this.storeTrouble = null;
-      this.unstored = [];
-      for (const unit of new Set(news.late.map((one) => one.unit))) alarmsMoved(unit);
+      this.written(news.late);
       if (news.isNew) stepped(runner, step);
       for (const one of news.events) event(one);
       if (news.moved) alarmsMoved(runner.unit.id);
     } catch (thrown) {
       // What cannot be stored is said all the same, and stored with the next scan that can be.
       this.storeFailed('history_failures', thrown);
+      this.waiting.push({ runner, step });
       this.unstored.push(...events);
       counters.add('events_lost', this.unstored.splice(MOST_UNSTORED).length);
       stepped(runner, step);
       for (const one of events) event(one);
     }
     this.checkpointIfDue(runner, time_ms);
+  }
+
+  /** So much waits to be stored that no more may be added. */
+  get isFull(): boolean {
+    return this.waiting.length >= MOST_WAITING;
+  }
+
+  /** Tries to store what waits; false where the history cannot be written still. */
+  retry(): boolean {
+    const { history } = this.options;
+    try {
+      const late = history.write(() => {
+        for (const { runner, step } of this.waiting) this.put(runner, step);
+        return this.unstored.filter((one) => history.events.add(one));
+      });
+      this.written(late);
+      return true;
+    } catch (thrown) {
+      this.storeFailed('history_failures', thrown);
+      return false;
+    }
+  }
+
+  /** What waited has been stored. */
+  private written(late: readonly WatchEvent[]): void {
+    this.storeTrouble = null;
+    this.waiting = [];
+    this.unstored = [];
+    for (const unit of new Set(late.map((one) => one.unit))) this.options.alarmsMoved(unit);
+  }
+
+  /** Within a transaction. */
+  private put(runner: UnitRunner, { step, measured }: RunnerStep) {
+    const { history } = this.options;
+    const { estimate, profile, cycle, watch } = step;
+    const isNew = history.estimates.add(runner.unit, estimate, measured);
+    if (profile) history.profiles.add(profile);
+    if (cycle) history.cycles.add(cycle);
+    if (watch) history.watch.add(watch);
+    // A scan that is known, as in a replay after a restart, has moved its alarms already.
+    const time_ms = Date.parse(estimate.time);
+    const moved = isNew && history.alarms.scan(runner.unit.id, estimate.mode, time_ms);
+    return { isNew, moved };
   }
 
   /**
@@ -106,7 +149,7 @@ export class Entering {
   save(runner: UnitRunner, last = false): void {
     const { history } = this.options;
     const checkpoint = runner.checkpoint();
-    if (!checkpoint) return;
+    if (!checkpoint || (this.waiting.length > 0 && !this.retry())) return;
     try {
       history.write(() => {
         this.writeLate(runner.unit.id);
@@ -124,7 +167,7 @@ export class Entering {
   standingOf(unit: string): ReadonlySet<string> {
     try {
       const events = this.options.history.alarms.active(unit);
-      const own = events.filter(({ kind }) => kind !== 'database_unreachable');
+      const own = events.filter(({ kind }) => !isOfTheMachine(kind));
       return new Set(own.map(({ kind, subject }) => `${kind}/${subject}`));
     } catch (thrown) {
       this.storeFailed('history_failures', thrown);

@@ -134,7 +134,12 @@ export class Pipeline {
   private slice(): void {
     this.scheduled = null;
     const end = performance.now() + SLICE_MS;
+    const { entering } = this.options;
     while (this.running && performance.now() < end) {
+      if (entering.isFull && !entering.retry()) {
+        this.rest();
+        return;
+      }
       if (this.busy.length > 0) this.stepBusy();
       else if (!this.takeNext()) {
         this.rest();
@@ -167,7 +172,8 @@ export class Pipeline {
     this.seq = entry.seq;
     const runner = runners.find(({ unit }) => unit.id === entry.unit);
     const isLive = entry.seq >= this.liveFrom;
-    const fate = runner ? runner.take(entry, steady.now()) : 'unconfigured';
+    const isNobodys = entry.unit === '';
+    const fate = runner ? runner.take(entry, steady.now()) : isNobodys ? null : 'unconfigured';
     if (fate !== null && isLive) {
       counters.add(fate);
       if (TOLD_FATES.includes(fate)) notices.warn(fate, describe(entry, fate));

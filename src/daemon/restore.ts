@@ -1,7 +1,7 @@
 import type { StoredCheckpoint } from '../adapters/history/checkpoints.js';
 import type { History } from '../adapters/history/history.js';
 import type { Journal } from '../adapters/history/journal.js';
-import type { WatchEvent } from '../core/watch/event.js';
+import { isOfTheMachine, type WatchEvent } from '../core/watch/event.js';
 import { reasonOf } from '../errors.js';
 import type { Log } from '../log.js';
 import type { DaemonClock, SteadyClock } from './clock.js';
@@ -109,7 +109,7 @@ function tellLost(runner: UnitRunner, lost: readonly string[], parts: RestorePar
 
 /** What the unit's estimator has raised and not returned. */
 function standingOf(unit: string, history: History): WatchEvent[] {
-  return history.alarms.active(unit).filter(({ kind }) => kind !== 'database_unreachable');
+  return history.alarms.active(unit).filter(({ kind }) => !isOfTheMachine(kind));
 }
 
 /** What stood and has lost its ground would stand for ever: the new state never raised it. */

@@ -116,7 +116,11 @@ async function diskFull(run: Run): Promise<Ledger> {
   const fill = (pid: number) => {
     if (!isMounted) return limitFiles(pid, 1);
     const { bavail, bsize } = statfsSync(disk);
-    writeFileSync(ballast, Buffer.alloc(bavail * bsize));
+    try {
+      writeFileSync(ballast, Buffer.alloc(bavail * bsize));
+    } catch {
+      // The daemon took some of it meanwhile: full is what it should be.
+    }
     return true;
   };
   const empty = (pid: number) => (isMounted ? rmSync(ballast) : limitFiles(pid, null));

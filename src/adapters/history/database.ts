@@ -94,13 +94,20 @@ function migrate(database: Database, file: string, steps: Migrations): void {
   })();
 }
 
+/** Empty pages within a file, which are written to before it grows [bytes]. */
+export function emptyBytes(database: Database): number {
+  const [pages, bytes] = ['freelist_count', 'page_size'].map((name) =>
+    Number(database.pragma(name, { simple: true })),
+  );
+  return pages! * bytes!;
+}
+
 const ADVICE: Readonly<Record<string, string>> = {
   SQLITE_ERROR:
     'The file is not as this rockhour makes it: it may be of a build in between. Set another store.folder.',
   SQLITE_FULL: 'The disk is full: make room. Readings wait at the broker until there is some.',
   SQLITE_CORRUPT:
-    'The file is damaged: stop rockhour, keep the file for examination and start with another ' +
-    'store.folder; readings that are still at the broker come in again.',
+    'The file is damaged: the next start of the daemon sets it aside and takes over what can be read.',
   SQLITE_NOTADB: 'The file is no database of rockhour: set another store.folder.',
   SQLITE_READONLY: 'The file or its folder may not be written: check owner and permissions.',
   SQLITE_BUSY: 'Another process holds the file: only one rockhour may use a store.folder.',

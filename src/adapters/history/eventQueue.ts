@@ -9,10 +9,15 @@ export class EventQueue {
   private readonly name: string;
 
   constructor(
-    private readonly database: Database,
+    private readonly opened: () => Database,
     receiver: string,
   ) {
     this.name = `events to ${receiver}`;
+  }
+
+  /** The database at hand: a damaged one is replaced while the daemon runs. */
+  private get database(): Database {
+    return this.opened();
   }
 
   /** To be called once the database is open. */

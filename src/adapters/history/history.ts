@@ -1,9 +1,10 @@
 import type { StoreConfig } from '../../config/site.js';
 import type { UnitDefinition } from '../../core/definitions.js';
+import { reasonOf } from '../../errors.js';
 import { type AlarmRules, Alarms } from './alarms.js';
 import { Checkpoints } from './checkpoints.js';
 import { Cycles } from './cycles.js';
-import { type Database, openDatabase, openToRead, storeFailure } from './database.js';
+import { type Database, emptyBytes, openDatabase, openToRead, storeFailure } from './database.js';
 import { Estimates } from './estimates.js';
 import { EventQueue } from './eventQueue.js';
 import { Events } from './events.js';
@@ -13,13 +14,28 @@ import { Offers } from './offers.js';
 import { Outbox } from './outbox.js';
 import { Past } from './past.js';
 import { Profiles } from './profiles.js';
-import { applyRetention, type RetentionCounts } from './retention.js';
+import { applyRetention, forgetOldest, type RetentionCounts, thinEstimates } from './retention.js';
 import { RewindPoints } from './rewindPoints.js';
 import { Rewinds } from './rewinds.js';
 import { Rollups } from './rollups.js';
 import { HISTORY_SCHEMA } from './schema.js';
 import { Sequence } from './sequence.js';
+import {
+  isDamage,
+  moveAside,
+  type Salvaged,
+  type SetAside,
+  takeOverRows,
+  wasOurs,
+} from './setAside.js';
 import { WatchViews } from './watchViews.js';
+
+const ROW = { key: 'rowid', most: Number.MAX_SAFE_INTEGER } as const;
+/** What is taken over of a damaged history: all that cannot be made again, and is small. */
+const TAKEN_OVER: readonly Salvaged[] = [
+  ...['cursors', 'checkpoints', 'rewind_points', 'alarms', 'alarm_transitions', 'events', 'cycles'],
+  ...['offers', 'tellings', 'rewinds', 'withdrawals'],
+].map((table) => ({ table, ...ROW }));
 
 /**
  * The local history: one SQLite file with estimates, dispatch answers, offers, profiles, events,
@@ -49,12 +65,40 @@ export class History {
     private readonly file: string,
     private readonly store: StoreConfig,
     private readonly rules: AlarmRules = { latching: [], out_of_service: [] },
+    /** Told where the file was damaged and a fresh one has been begun. */
+    private readonly setAside: (what: SetAside) => void = () => undefined,
   ) {}
 
-  /** @throws RockhourError STORE_FAILED */
+  /** @throws RockhourError STORE_FAILED; not where it was damaged: it is set aside then */
   start(): void {
     if (this.opened) return;
-    this.open(openDatabase(this.file, 'normal', HISTORY_SCHEMA));
+    try {
+      this.open(openDatabase(this.file, 'normal', HISTORY_SCHEMA));
+    } catch (thrown) {
+      if (!isDamage(thrown) || !wasOurs(this.file, 'estimates')) throw thrown;
+      this.renew(thrown, true);
+    }
+  }
+
+  /**
+   * Sets the damaged file aside and goes on with a fresh one. States, alarms, runs and cursors are taken
+   * over as far as they can be read; estimates are made again from the oldest state, where the journal
+   * still reaches that far: of the last two days in general.
+   *
+   * @param remakes false while the daemon runs: its units are ahead, and their past stays in the old file
+   */
+  private renew(thrown: unknown, remakes: boolean): void {
+    this.stop();
+    const kept = moveAside(this.file);
+    const fresh = openDatabase(this.file, 'normal', HISTORY_SCHEMA);
+    const rows = fresh.transaction(() => takeOverRows(kept, fresh, TAKEN_OVER))();
+    if (remakes) {
+      fresh.exec(`DELETE FROM checkpoints WHERE unit IN (SELECT unit FROM rewind_points);
+        DELETE FROM rewind_points WHERE (unit, time) NOT IN
+          (SELECT unit, min(time) FROM rewind_points GROUP BY unit);`);
+    }
+    this.open(fresh);
+    this.setAside({ kept, reason: reasonOf(thrown), rows });
   }
 
   /** For reports: reads alone, beside a daemon. @throws RockhourError STORE_FAILED */
@@ -136,7 +180,7 @@ export class History {
 
   /** What is told outside, for a receiver that keeps its own place in it. */
   eventQueue(receiver: string): EventQueue {
-    return new EventQueue(this.parts.database, receiver);
+    return new EventQueue(() => this.parts.database, receiver);
   }
 
   /** Runs `write` in one transaction; SQLite's failures become errors of the catalogue. */
@@ -144,6 +188,7 @@ export class History {
     try {
       return this.parts.database.transaction(write)();
     } catch (thrown) {
+      if (isDamage(thrown)) return this.writeAnew(thrown, write);
       if (thrown instanceof Error && 'code' in thrown && String(thrown.code).startsWith('SQLITE')) {
         throw storeFailure(`writing to the history ${this.file}`, thrown);
       }
@@ -151,10 +196,48 @@ export class History {
     }
   }
 
+  private writeAnew<T>(thrown: unknown, write: () => T): T {
+    // Within a transaction of its own caller the outermost one is run again.
+    if (this.opened?.database.inTransaction) throw thrown;
+    try {
+      this.renew(thrown, false);
+      return this.parts.database.transaction(write)();
+    } catch (again) {
+      throw storeFailure(`writing to the history ${this.file}`, again);
+    }
+  }
+
+  /** Number of the newest journal entry that a saved state has taken in; 0 where there is none. */
+  get journalReach(): number {
+    const found = this.parts.database.prepare(
+      `SELECT max(n) FROM (SELECT max(journal_seq) AS n FROM checkpoints
+         UNION ALL SELECT max(journal_seq) FROM rewind_points)`,
+    );
+    return (found.pluck().get() as number | null) ?? 0;
+  }
+
   /** See applyRetention. */
   retain(now_ms: number, forwarded: number): RetentionCounts {
     const { database, rollups } = this.parts;
     return this.write(() => applyRetention(database, rollups, this.store, now_ms, forwarded));
+  }
+
+  /** Empty pages within the file, which are written to before it grows [bytes]. */
+  get emptyBytes(): number {
+    return emptyBytes(this.parts.database);
+  }
+
+  /** Thins a day of estimates before its time; gives the rows that went. See applyRetention. */
+  thinEarly(now_ms: number, forwarded: number): number {
+    const { database, rollups } = this.parts;
+    const store = { ...this.store, thin_after_days: Math.min(1, this.store.thin_after_days) };
+    return this.write(() => thinEstimates(database, rollups, store, now_ms, forwarded));
+  }
+
+  /** Deletes the oldest day of what is more than a week old and was forwarded; gives the rows. */
+  forgetOldest(now_ms: number, forwarded: number): number {
+    const { database, rollups } = this.parts;
+    return this.write(() => forgetOldest(database, rollups, now_ms, forwarded));
   }
 
   /** Rolls up a day of what is not yet, as an older version left it; false where there is no such day. */

@@ -1,10 +1,18 @@
 import type { Statement } from 'better-sqlite3';
-import { type Database, openDatabase, storeFailure } from './database.js';
+import { reasonOf } from '../../errors.js';
+import { type Database, emptyBytes, openDatabase, storeFailure } from './database.js';
+import { isDamage, moveAside, type SetAside, takeOverRows, wasOurs } from './setAside.js';
 
 /** 0 good, 1 uncertain, 2 bad; 9 marks that a scan was closed at its deadline. */
 export const JOURNAL_QUALITY = { good: 0, uncertain: 1, bad: 2 } as const;
 export type ReadingQuality = keyof typeof JOURNAL_QUALITY;
 const CLOSE_MARK = 9;
+/** Marks that numbers were left out before it: those of a damaged journal may have been used. */
+const LEFT_OUT_MARK = 7;
+/** More numbers than a journal can have given since what is known of it [entries]. */
+const LEFT_OUT = 2 ** 24;
+/** Newest entries of a damaged journal that are taken over: hours or days of a plant. */
+const MOST_TAKEN_OVER = 1_000_000;
 
 /** A reading on its way into the journal; `value` in SI units (mV as it is), NaN = none. */
 export interface JournalReading {
@@ -20,7 +28,7 @@ export type ReadingEntry = { readonly kind: 'reading'; readonly seq: number } & 
 
 export type JournalEntry =
   | ReadingEntry
-  /** All scans of the unit up to this index were closed here. */
+  /** All scans of the unit up to this index were closed here; no unit: numbers were left out. */
   | {
       readonly kind: 'close';
       readonly seq: number;
@@ -55,7 +63,8 @@ const UNIT_ITSELF = '';
  * that say when a scan was closed by the clock: scans are made from what stands here and from
  * nothing else, so that a restart or a replay makes the same scans again.
  *
- * Entries are numbered without gaps from 1 on; numbers are never used twice.
+ * Entries are numbered from 1 on, without gaps but where a damaged journal was set aside; numbers are
+ * never used twice.
  */
 export class Journal {
   private database: Database | null = null;
@@ -66,12 +75,31 @@ export class Journal {
   private readonly numbers = new Map<string, number>();
   private readonly names = new Map<number, { unit: string; channel: string }>();
 
-  constructor(private readonly file: string) {}
+  /**
+   * @param reach number of the newest entry that anything else remembers
+   * @param setAside told where the file was damaged and a fresh one has been begun
+   */
+  constructor(
+    private readonly file: string,
+    private readonly reach: () => number = () => 0,
+    private readonly setAside: (what: SetAside) => void = () => undefined,
+  ) {}
 
+  /** @throws RockhourError STORE_FAILED; not where it was damaged: it is set aside then */
   start(): void {
     if (this.database) return;
-    const database = openDatabase(this.file, 'full', SCHEMA);
+    try {
+      this.open(openDatabase(this.file, 'full', SCHEMA));
+    } catch (thrown) {
+      if (!isDamage(thrown) || !wasOurs(this.file, 'entries')) throw thrown;
+      this.renew(thrown);
+    }
+  }
+
+  private open(database: Database): void {
     this.database = database;
+    this.numbers.clear();
+    this.names.clear();
     this.insert = database.prepare(
       'INSERT INTO entries (seq, source, time, arrival, value, quality) VALUES (?, ?, ?, ?, ?, ?)',
     );
@@ -89,9 +117,53 @@ export class Journal {
     this.last = this.first('SELECT max(seq) AS n FROM entries') ?? 0;
   }
 
+  /**
+   * Sets the damaged file aside and goes on with a fresh one that has what could still be read, behind
+   * numbers that were left out.
+   */
+  private renew(thrown: unknown): void {
+    const { last } = this;
+    this.stop();
+    const kept = moveAside(this.file);
+    const fresh = openDatabase(this.file, 'full', SCHEMA);
+    const rows = fresh.transaction(() =>
+      takeOverRows(kept, fresh, [
+        { table: 'sources', key: 'no', most: MOST_TAKEN_OVER },
+        { table: 'entries', key: 'seq', most: MOST_TAKEN_OVER },
+      ]),
+    )();
+    // What lost its source cannot be told any more.
+    fresh.exec('DELETE FROM entries WHERE source NOT IN (SELECT no FROM sources)');
+    this.open(fresh);
+    this.last = Math.max(this.last, last, this.reach());
+    if (this.last > 0) {
+      const seq = this.last + LEFT_OUT;
+      const source = this.sourceNumber(UNIT_ITSELF, UNIT_ITSELF);
+      this.insert.run(seq, source, 0, Date.now(), null, LEFT_OUT_MARK);
+      this.last = seq;
+    }
+    this.setAside({ kept, reason: reasonOf(thrown), rows });
+  }
+
+  /** Once more on a fresh file where this one is damaged. */
+  private mended<T>(act: () => T): T {
+    try {
+      return act();
+    } catch (thrown) {
+      if (!isDamage(thrown)) throw thrown;
+      this.renew(thrown);
+      return act();
+    }
+  }
+
   stop(): void {
     this.database?.close();
     this.database = null;
+  }
+
+  /** Empty pages within the file, which are written to before it grows [bytes]. */
+  get emptyBytes(): number {
+    return emptyBytes(this.opened());
   }
 
   /** Number of the newest entry, 0 before the first. */
@@ -129,7 +201,8 @@ export class Journal {
   /** Entries after `seq`, oldest first, at most `most`. */
   read(seq: number, most: number): JournalEntry[] {
     try {
-      return (this.select.all(seq, most) as Row[]).map((row) => this.entry(row));
+      const rows = this.mended(() => this.select.all(seq, most) as Row[]);
+      return rows.map((row) => this.entry(row));
     } catch (thrown) {
       throw storeFailure(`reading the journal ${this.file}`, thrown);
     }
@@ -148,7 +221,7 @@ export class Journal {
   ): { entries: JournalEntry[]; seq: number } {
     try {
       const end = Math.min(through_seq, seq + most);
-      const rows = this.selectUnit.all(seq, end, unit) as Row[];
+      const rows = this.mended(() => this.selectUnit.all(seq, end, unit) as Row[]);
       return { entries: rows.map((row) => this.entry(row)), seq: end };
     } catch (thrown) {
       throw storeFailure(`reading the journal ${this.file}`, thrown);
@@ -165,7 +238,10 @@ export class Journal {
     // Arrival times follow the numbers but for a clock that was set: no index is worth its writes.
     let low = (this.first('SELECT min(seq) AS n FROM entries') ?? 1) - 1;
     let high = this.last;
-    const at = this.open().prepare('SELECT arrival FROM entries WHERE seq = ?').pluck();
+    // Of the newest entry up to a number: some numbers may have been left out.
+    const at = this.opened()
+      .prepare('SELECT arrival FROM entries WHERE seq <= ? ORDER BY seq DESC LIMIT 1')
+      .pluck();
     while (low < high) {
       const middle = Math.ceil((low + high) / 2);
       if ((at.get(middle) as number) < arrival_ms) low = middle;
@@ -180,9 +256,12 @@ export class Journal {
    */
   forget(seq: number, most = 100_000): number {
     try {
-      const oldest = this.first('SELECT min(seq) AS n FROM entries') ?? 0;
-      const end = Math.min(seq, this.last - 1, oldest + most - 1);
-      return this.open().prepare('DELETE FROM entries WHERE seq <= ?').run(end).changes;
+      const end = Math.min(seq, this.last - 1);
+      return this.opened()
+        .prepare(
+          'DELETE FROM entries WHERE seq IN (SELECT seq FROM entries WHERE seq <= ? ORDER BY seq LIMIT ?)',
+        )
+        .run(end, most).changes;
     } catch (thrown) {
       throw storeFailure(`thinning the journal ${this.file}`, thrown);
     }
@@ -190,11 +269,14 @@ export class Journal {
 
   private commit(count: number, write: (seq: number, i: number) => void): number {
     if (count === 0) return this.last;
-    const known = this.names.size;
+    let known = this.names.size;
     try {
-      this.open().transaction(() => {
-        for (let i = 0; i < count; i++) write(this.last + 1 + i, i);
-      })();
+      this.mended(() => {
+        known = this.names.size;
+        this.opened().transaction(() => {
+          for (let i = 0; i < count; i++) write(this.last + 1 + i, i);
+        })();
+      });
     } catch (thrown) {
       this.forgetSources(known);
       throw storeFailure(`writing to the journal ${this.file}`, thrown);
@@ -206,8 +288,8 @@ export class Journal {
   private sourceNumber(unit: string, channel: string): number {
     const known = this.numbers.get(key(unit, channel));
     if (known !== undefined) return known;
-    const no = this.names.size + 1;
-    this.open()
+    const no = Math.max(0, ...this.names.keys()) + 1;
+    this.opened()
       .prepare('INSERT INTO sources (no, unit, channel) VALUES (?, ?, ?)')
       .run(no, unit, channel);
     this.numbers.set(key(unit, channel), no);
@@ -225,7 +307,7 @@ export class Journal {
 
   private entry(row: Row): JournalEntry {
     const name = this.names.get(row.source)!;
-    if (row.quality === CLOSE_MARK) {
+    if (row.quality === CLOSE_MARK || row.quality === LEFT_OUT_MARK) {
       return {
         kind: 'close',
         seq: row.seq,
@@ -246,13 +328,13 @@ export class Journal {
     };
   }
 
-  private open(): Database {
+  private opened(): Database {
     if (!this.database) throw new RangeError('journal must be started, got one that is not');
     return this.database;
   }
 
   private first(sql: string): number | null {
-    return this.open().prepare(sql).pluck().get() as number | null;
+    return this.opened().prepare(sql).pluck().get() as number | null;
   }
 }
 

@@ -80,7 +80,47 @@ export function removeSurplusOffers(database: Database, most = MOST_KEPT): numbe
   return removed;
 }
 
-function thinEstimates(
+/** Younger rows stay even where the disk is nearly full [ms]. */
+const KEPT_ANYHOW_MS = 7 * DAY_MS;
+const SEQUENCED = ['estimates', 'dispatch'];
+const OTHERS = ['profiles', 'watch', 'offers'];
+
+/**
+ * Makes room where the disk is nearly full: deletes the oldest day of pictures (profiles, indicators,
+ * offers), and where none of more than a week is left, of estimates and hours. What the time-series
+ * database has not yet taken over stays. Events, alarms, runs and roll-ups are small and stay as well.
+ *
+ * @returns rows deleted
+ */
+export function forgetOldest(
+  database: Database,
+  rollups: Rollups,
+  now_ms: number,
+  forwarded: number,
+): number {
+  const limit = Math.min(forwarded, Number.MAX_SAFE_INTEGER);
+  for (const tables of [OTHERS, SEQUENCED]) {
+    const oldest = tables.flatMap((table) => {
+      const time = database.prepare(`SELECT min(time) FROM ${table}`).pluck().get();
+      return time === null ? [] : [time as number];
+    });
+    if (oldest.length === 0) continue;
+    const end = Math.min(Math.min(...oldest) + DAY_MS, now_ms - KEPT_ANYHOW_MS);
+    if (tables === SEQUENCED && !rollups.units().every((unit) => rollups.close(unit, end)))
+      continue;
+    let rows = 0;
+    for (const table of tables) {
+      const due = tables === SEQUENCED ? ' AND seq <= @limit' : '';
+      const sql = `DELETE FROM ${table} WHERE time < @end${due}`;
+      rows += database.prepare(sql).run({ end, ...(due === '' ? {} : { limit }) }).changes;
+    }
+    if (rows > 0) return rows;
+  }
+  return 0;
+}
+
+/** Thins estimates of a day that is old enough, unless some of it is not forwarded; rows that went. */
+export function thinEstimates(
   database: Database,
   rollups: Rollups,
   store: StoreConfig,
@@ -88,6 +128,7 @@ function thinEstimates(
   limit: number,
 ): number {
   const width_ms = Math.round(store.thin_to_s * 1000);
+  const due = Math.min(limit, Number.MAX_SAFE_INTEGER);
   const wanted = now_ms - store.thin_after_days * DAY_MS;
   const end = Math.floor(wanted / width_ms) * width_ms;
   const reached = database.prepare("SELECT value FROM cursors WHERE name = 'thinned'").pluck();
@@ -97,7 +138,7 @@ function thinEstimates(
   const start = Math.floor(from / width_ms) * width_ms;
   const to = Math.min(end, start + Math.max(width_ms, Math.floor(STEP_MS / width_ms) * width_ms));
   if (to <= start) return 0;
-  const span = { start, to, width: width_ms, limit };
+  const span = { start, to, width: width_ms, limit: due };
   const waiting = database
     .prepare('SELECT 1 FROM estimates WHERE time >= @start AND time < @to AND seq > @limit')
     .get(span);

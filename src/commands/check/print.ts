@@ -14,12 +14,29 @@ export function factsAsText(file: string, site: SiteConfig, units: readonly Unit
     `${file} is sound.`,
     `${site.name}: ${count(units.length, 'unit')}, ${count(channels, 'channel')} from ${count(site.sources.length, 'topic')}`,
     `MQTT     ${site.mqtt.url ?? `its own broker on ${site.mqtt.embedded_host}:${site.mqtt.embedded_port}`}`,
+    ...(site.mqtt.url === null ? [] : [brokerText(site)]),
     `Influx   ${site.influx === null ? 'none: the local store alone serves' : `${site.influx.url}, database ${site.influx.database}`}`,
     `Store    ${site.store.folder}`,
     `Page     http://${site.http.host}:${site.http.port}${site.http.path_prefix}`,
   ];
   const open = notesText(siteNotes(site));
   return [head.join('\n'), ...(open === '' ? [] : [open]), ...units.map(unitText)].join('\n\n');
+}
+
+/** What mosquitto keeps of itself for a subscriber that is away [messages]. */
+const QUEUED = 1000;
+
+/** How soon a broker with its own limits drops what comes while rockhour is away. */
+function brokerText(site: SiteConfig): string {
+  const per_s = site.units.reduce((sum, unit) => {
+    const own = site.sources.filter((source) => source.unit === unit.id).length;
+    return sum + own / unit.scan_period_s;
+  }, 0);
+  const within_min = QUEUED / per_s / 60;
+  return (
+    `Broker   keeps what comes while rockhour is away: mosquitto of itself ${QUEUED} messages, here ` +
+    `${within_min.toPrecision(2)} min of all channels; raise max_queued_messages, set persistence true`
+  );
 }
 
 function unitText(unit: UnitFacts): string {

@@ -45,6 +45,8 @@ const SUBJECTS: Readonly<Record<EventKind, Subjects>> = {
   gas_temperature_off: ({ channels }) =>
     channels.filter(({ role }) => role.kind === 'gas_temperature').map(({ id }) => id),
   database_unreachable: (_, services) => [...services],
+  disk_full: () => ['disk'],
+  store_damaged: () => ['journal', 'history'],
   heat_transfer_low: STORES,
   string_flow_uneven: STRINGS,
   front_travel_off: STORES,

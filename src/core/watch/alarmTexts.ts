@@ -80,6 +80,20 @@ export const ALARM_TEXTS: Readonly<Record<EventKind, AlarmText>> = {
     action: 'Look at the server and the network.',
     respond_within_h: DAY_H,
   },
+  disk_full: {
+    cause: 'The disk of this machine is full, and thinning what rockhour keeps gives no more room.',
+    consequence:
+      'No reading is taken in: they wait at the broker, which loses them beyond what it may keep.',
+    action: 'Make room on the disk, or have it made; rockhour goes on by itself.',
+    respond_within_h: 1,
+  },
+  store_damaged: {
+    cause: 'The disk, its controller or another program has damaged a file of the local store.',
+    consequence:
+      'It was set aside and a fresh one begun; what could not be read is missing from it.',
+    action: 'Have the disk examined; keep the old file until its history is no longer wanted.',
+    respond_within_h: DAY_H,
+  },
   heat_transfer_low: {
     cause: 'Dust or fines cover the rock, or gas passes it in channels.',
     consequence: 'Fronts widen; usable energy shrinks cycle by cycle.',

@@ -9,6 +9,8 @@ export const EVENT_KINDS = [
   'front_view_disagrees',
   'gas_temperature_off',
   'database_unreachable',
+  'disk_full',
+  'store_damaged',
   'heat_transfer_low',
   'string_flow_uneven',
   'front_travel_off',
@@ -22,6 +24,11 @@ export const EVENT_KINDS = [
   'energy_lost',
 ] as const;
 export type EventKind = (typeof EVENT_KINDS)[number];
+
+/** Raised by the daemon of itself and its services, not by a unit's estimator: no saved state has it. */
+export function isOfTheMachine(kind: EventKind): boolean {
+  return ['database_unreachable', 'disk_full', 'store_damaged'].includes(kind);
+}
 
 export interface WatchEvent {
   /** Stable over raise and return: `${unit}/${kind}/${subject}`. */

@@ -3,10 +3,12 @@ import type { IndicatorKind } from './indicator.js';
 
 /**
  * Alarm or alert, and how urgent. After ISA-18.2 an alarm needs the operator to act in time. Three of
- * the conditions watched here do: a discharge that ends within the hour and earlier than was told has
+ * the plant's conditions watched here do: a discharge that ends within the hour and earlier than was told has
  * to be answered by power or by a change-over (one that ends as told asks for nothing); a pressure
  * drop close to its limit trips the machine at the next rise of flow; and a discharge that runs on an estimate which has lost its readings runs into its outlet limit unannounced, so that the
- * operator has to take the control system's outlets for a guide now. The others inform those who look
+ * operator has to take the control system's outlets for a guide now. A fourth is of the machine that
+ * rockhour runs on: with a full disk no reading is taken in, and within the hour a broker that keeps
+ * little begins to lose them. The others inform those who look
  * after bed, sensors and network; missing data is the most urgent of them. While charging or standing
  * it costs nothing within the hour, so it is no alarm there.
  */
@@ -19,7 +21,9 @@ export const KIND_CLASSES: Readonly<
   outlet_near_limit: { class: 'alarm', priority: 'high' },
   pressure_drop_near_limit: { class: 'alarm', priority: 'high' },
   estimate_blind: { class: 'alarm', priority: 'medium' },
+  disk_full: { class: 'alarm', priority: 'medium' },
   data_stale: { class: 'alert', priority: 'high' },
+  store_damaged: { class: 'alert', priority: 'high' },
   front_spread: { class: 'alert', priority: 'medium' },
   database_unreachable: { class: 'alert', priority: 'medium' },
   gas_temperature_off: { class: 'alert', priority: 'medium' },

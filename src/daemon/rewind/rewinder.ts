@@ -1,7 +1,7 @@
 import type { History } from '../../adapters/history/history.js';
 import type { Journal, ReadingEntry } from '../../adapters/history/journal.js';
 import { MOST_DIFFERENCES, type RewindRecord } from '../../core/scan/rewindRecord.js';
-import type { WatchEvent } from '../../core/watch/event.js';
+import { isOfTheMachine, type WatchEvent } from '../../core/watch/event.js';
 import { differences, hindsight } from '../../core/watch/hindsight.js';
 import { RockhourError, reasonOf } from '../../errors.js';
 import type { Log } from '../../log.js';
@@ -237,7 +237,7 @@ export class Rewinder {
     if (state) history.checkpoints.add(unit, state);
     history.late.take(unit.id, through_seq);
     const span = { from_ms: rerun.from_ms, end_ms: rerun.reached_ms + 1 };
-    const own = ({ kind }: WatchEvent) => kind !== 'database_unreachable';
+    const own = ({ kind }: WatchEvent) => !isOfTheMachine(kind);
     const told = history.events.between(unit.id, span.from_ms, span.end_ms, 10_000).filter(own);
     const found = differences(told, rerun.events, unit.scan_period_s * 1000);
     const time = new Date(rerun.reached_ms).toISOString();
