@@ -8,6 +8,7 @@ import { ScanTimes } from './adapters/http/scanTimes.js';
 import { createHttpServer } from './adapters/http/server.js';
 import type { HealthPart, PlantService } from './adapters/http/service.js';
 import { Intake } from './adapters/mqtt/intake.js';
+import { SparkplugHost } from './adapters/mqtt/sparkplug/host.js';
 import { readSource, type SiteSource } from './config/load.js';
 import type { SiteConfig } from './config/site.js';
 import type { WatchEvent } from './core/watch/event.js';
@@ -19,10 +20,16 @@ import { type Core, realCore } from './daemon/core.js';
 import { Counters } from './daemon/counters.js';
 import { DatabasePart } from './daemon/databasePart.js';
 import { Entering } from './daemon/entering.js';
-import { brokerHealth, clockHealth, storeHealth, unitHealth } from './daemon/health.js';
+import {
+  brokerHealth,
+  clockHealth,
+  edgeNodeHealth,
+  storeHealth,
+  unitHealth,
+} from './daemon/health.js';
 import { Hourly } from './daemon/hourly.js';
 import { Housekeeping } from './daemon/housekeeping.js';
-import { runnerMaker } from './daemon/makeRunners.js';
+import { futureTolerance, runnerMaker } from './daemon/makeRunners.js';
 import { MqttPart } from './daemon/mqttPart.js';
 import { Notices } from './daemon/notices.js';
 import { NotifyPart } from './daemon/notifyPart.js';
@@ -96,6 +103,7 @@ class RockhourDaemon implements Daemon {
   private readonly pipeline: Pipeline;
   private readonly rewinder: Rewinder;
   private readonly intake: Intake;
+  private readonly edgeNodes: SparkplugHost;
   private readonly mqtt: MqttPart;
   private readonly alarms: AlarmPart;
   private readonly database: DatabasePart | null;
@@ -176,8 +184,19 @@ class RockhourDaemon implements Daemon {
       raised: (event) => this.service.tell({ kind: 'event', unit: event.unit, event }),
       changed: (unit) => this.service.tell({ kind: 'alarms', unit }),
     });
+    this.edgeNodes = new SparkplugHost({
+      ...{ units: site.units, sources: site.sparkplug ?? [] },
+      future_tolerance_ms: futureTolerance(site),
+      now: () => Math.floor(clock.now()),
+      steady: () => performance.now(),
+      count: (name) => counters.add(name),
+      notice: (kind, text) => notices.warn(kind, text),
+      command: (topic, payload) => this.mqtt.command(topic, payload),
+      add: (readings) => this.intake.add(readings),
+    });
     this.intake = new Intake({
       units: site.units,
+      sparkplug: this.edgeNodes,
       sources: site.sources,
       now: () => Math.floor(clock.now()),
       commit: (readings) => {
@@ -191,6 +210,8 @@ class RockhourDaemon implements Daemon {
     this.mqtt = new MqttPart({
       ...{ config: site.mqtt, site: site.name, version, intake: this.intake, clock, log, notices },
       counters,
+      edgeNodes: this.edgeNodes,
+      heardLast: () => journal.read(journal.lastSeq - 1, 1)[0]?.arrival_ms ?? null,
       units: [...this.runners.keys()],
       access: this.access,
       command: (command, unit) => this.alarms.command(command, unit),
@@ -401,6 +422,7 @@ class RockhourDaemon implements Daemon {
       ...(this.database ? [this.database.health] : []),
       ...this.notify.health,
       ...(this.steps ? [clockHealth(clock.now(), this.steps.last)] : []),
+      ...this.edgeNodes.states.map(edgeNodeHealth),
       ...[...this.runners.values()].map((runner) =>
         unitHealth(runner, pipeline.failures.get(runner.unit.id), clock, future),
       ),

@@ -4,10 +4,12 @@ import type { StoreBlock } from './schema/store.js';
 
 /** The thermocouples of a string block, in the order in which the block lists them. */
 export interface ExpandedString {
+  /** 01, 02, ... as patterns name the thermocouples. */
+  readonly numbers: readonly string[];
   readonly ids: readonly string[];
   /** Distances from the charge inlet [m]. */
   readonly x_m: readonly number[];
-  /** One topic per thermocouple for payload value; a single one for array. */
+  /** One topic per thermocouple for payload value; a single one for array; none for sparkplug. */
   readonly topics: readonly string[];
 }
 
@@ -27,15 +29,18 @@ export function expandString(
       );
   const base = string.topic ?? `${inPrefix}/${unitId}/${store.id}/${string.id}`;
   const topics =
-    string.payload === 'array'
-      ? [base]
-      : string.positions_m.map((_, i) =>
-          fill(string.topic === undefined ? `${base}/{id}` : base, {
-            id: ids[i] ?? '',
-            n: number(i),
-          }),
-        );
-  return { ids, x_m: positionsFromInlet(store, string), topics };
+    string.payload === 'sparkplug'
+      ? []
+      : string.payload === 'array'
+        ? [base]
+        : string.positions_m.map((_, i) =>
+            fill(string.topic === undefined ? `${base}/{id}` : base, {
+              id: ids[i] ?? '',
+              n: number(i),
+            }),
+          );
+  const numbers = string.positions_m.map((_, i) => number(i));
+  return { ids, x_m: positionsFromInlet(store, string), topics, numbers };
 }
 
 /** Distances from the charge inlet [m] of positions counted from either end. */
@@ -75,7 +80,8 @@ export function channelTopic(
   return channel.topic ?? `${inPrefix}/${unit.id}/${channel.id}`;
 }
 
-function fill(pattern: string, words: Readonly<Record<string, string>>): string {
+/** A pattern with its words put in; words that are not known stay as they are. */
+export function fill(pattern: string, words: Readonly<Record<string, string>>): string {
   return pattern.replace(/\{(\w+)\}/g, (whole, word: string) =>
     Object.hasOwn(words, word) ? words[word]! : whole,
   );

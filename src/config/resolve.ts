@@ -2,6 +2,7 @@ import { resolve as resolvePath } from 'node:path';
 import type { UnitDefinition } from '../core/definitions.js';
 import { ZERO_CELSIUS_K } from '../core/units.js';
 import { channelTopic, expandString } from './expand.js';
+import { sparkplugSources } from './expandSparkplug.js';
 import { resolveChannels } from './resolveChannels.js';
 import {
   resolveEstimator,
@@ -22,6 +23,7 @@ export function resolveSite(site: SiteBlock, baseFolder: string, secrets: Secret
     name: site.name,
     units: site.units.map(resolveUnit),
     sources: site.units.flatMap((unit) => sourcesOf(unit, mqtt.in_prefix)),
+    sparkplug: site.units.flatMap((unit) => sparkplugSources(unit).sources),
     scan_deadline_s: site.scan_deadline_s,
     clock_tolerance_s: site.clock_tolerance_s,
     late: site.late,
@@ -36,6 +38,7 @@ export function resolveSite(site: SiteBlock, baseFolder: string, secrets: Secret
       qos: mqtt.qos,
       out_prefix: mqtt.out_prefix,
       tls: secrets.mqtt_tls,
+      sparkplug_node: mqtt.sparkplug_node ?? null,
     },
     influx:
       influx === undefined
@@ -89,6 +92,7 @@ function sourcesOf(unit: UnitBlock, inPrefix: string): ChannelSource[] {
   const strings = unit.stores.flatMap((store) =>
     store.strings.flatMap((string): ChannelSource[] => {
       const { ids, topics } = expandString(unit.id, store, string, inPrefix);
+      if (string.payload === 'sparkplug') return [];
       if (string.payload === 'array') {
         return [{ unit: unit.id, topic: topics[0]!, payload: 'array', channels: ids }];
       }
@@ -100,14 +104,16 @@ function sourcesOf(unit: UnitBlock, inPrefix: string): ChannelSource[] {
       }));
     }),
   );
-  const others = unit.channels.map(
-    (channel): ChannelSource => ({
-      unit: unit.id,
-      topic: channelTopic(unit, channel, inPrefix),
-      payload: 'value',
-      channels: [channel.id],
-    }),
-  );
+  const others = unit.channels
+    .filter(({ payload }) => payload === 'value')
+    .map(
+      (channel): ChannelSource => ({
+        unit: unit.id,
+        topic: channelTopic(unit, channel, inPrefix),
+        payload: 'value',
+        channels: [channel.id],
+      }),
+    );
   return [...strings, ...others];
 }
 

@@ -12,7 +12,7 @@ export function resolveChannels(unit: UnitBlock): ChannelDefinition[] {
         (id): ChannelDefinition => ({
           id,
           role: { kind: 'thermocouple', store: store.id, string: string.id },
-          reporting: reportingOf(string.reporting, string.unit),
+          reporting: reportingOf(string, string.unit),
           ...rawOf(string),
         }),
       ),
@@ -26,7 +26,7 @@ function resolveChannel(block: ChannelBlock): ChannelDefinition {
   return {
     id: block.id,
     role: roleOf(block),
-    reporting: reportingOf(block.reporting, unit),
+    reporting: reportingOf(block, unit),
     ...('thermocouple_type' in block || unit === 'mV'
       ? rawOf(block as Parameters<typeof rawOf>[0])
       : { raw_unit: unit, thermocouple_type: null, cold_junction: null }),
@@ -67,8 +67,17 @@ function rawOf(block: {
   };
 }
 
-function reportingOf(block: ChannelBlock['reporting'], unit: string): Reporting {
-  if (block.kind === 'periodic') return { kind: 'periodic' };
+/** Silence of a metric means no change as long as its edge node lives, whose death is told. */
+const SPARKPLUG_SILENCE_S = 86_400;
+
+function reportingOf(
+  { reporting: block, payload }: Pick<ChannelBlock, 'reporting'> & { payload: string },
+  unit: string,
+): Reporting {
+  if (block === undefined && payload === 'sparkplug') {
+    return { kind: 'by_exception', deadband: 0, longest_silence_s: SPARKPLUG_SILENCE_S };
+  }
+  if (block === undefined || block.kind === 'periodic') return { kind: 'periodic' };
   return {
     kind: 'by_exception',
     // The deadband of a raw voltage is stated in degC.

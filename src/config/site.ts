@@ -12,6 +12,17 @@ export interface ChannelSource {
   readonly channels: readonly string[];
 }
 
+/** A channel that is a metric of a Sparkplug edge node, or of a device at one. */
+export interface SparkplugSource {
+  readonly unit: string;
+  readonly channel: string;
+  readonly group: string;
+  readonly node: string;
+  /** null: the edge node itself. */
+  readonly device: string | null;
+  readonly metric: string;
+}
+
 /** Certificates towards a server, as PEM. */
 export interface ClientTls {
   /** Authorities that are believed; null: those that Node brings along. */
@@ -52,6 +63,8 @@ export interface MqttConfig {
   readonly out_prefix: string;
   /** Absent or null: nothing beyond what the url says. */
   readonly tls?: ClientTls | null;
+  /** rockhour as an edge node; absent or null: it is none. */
+  readonly sparkplug_node?: { readonly group: string; readonly node: string } | null;
 }
 
 export interface InfluxConfig {
@@ -135,6 +148,8 @@ export interface SiteConfig {
   readonly name: string;
   readonly units: readonly UnitDefinition[];
   readonly sources: readonly ChannelSource[];
+  /** Channels that come by Sparkplug; absent: none. */
+  readonly sparkplug?: readonly SparkplugSource[];
   /** How long after its nominal end a scan waits for missing readings [s]. */
   readonly scan_deadline_s: number;
   /**

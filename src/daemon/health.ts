@@ -1,6 +1,7 @@
 import type { InfluxForwarder } from '../adapters/history/influxForwarder.js';
 import type { Outbox } from '../adapters/history/outbox.js';
 import type { HealthPart } from '../adapters/http/service.js';
+import type { EdgeNodeState } from '../adapters/mqtt/sparkplug/host.js';
 import { LEAST_DATE_MS } from '../core/scan/assemble.js';
 import type { DaemonClock } from './clock.js';
 import { type ClockStep, stepWords } from './clockSteps.js';
@@ -60,6 +61,12 @@ export function clockHealth(now_ms: number, step: ClockStep | null): HealthPart 
     return { name: 'clock', ok: false, detail };
   }
   return { name: 'clock', ok: true, detail: step === null ? 'was not set' : stepWords(step) };
+}
+
+/** An edge node of Sparkplug that readings come from. */
+export function edgeNodeHealth({ name, absent }: EdgeNodeState): HealthPart {
+  const ok = absent.length === 0;
+  return { name: `edge node ${name}`, ok, detail: ok ? 'alive' : absent.join(', ') };
 }
 
 export function unitHealth(

@@ -6,6 +6,8 @@ import { EmbeddedBroker } from '../adapters/mqtt/broker.js';
 import type { DoorOptions } from '../adapters/mqtt/door.js';
 import type { Intake } from '../adapters/mqtt/intake.js';
 import { MqttLink } from '../adapters/mqtt/link.js';
+import type { SparkplugHost } from '../adapters/mqtt/sparkplug/host.js';
+import { parseTopic, topicOf } from '../adapters/mqtt/sparkplug/topics.js';
 import { TopicSet } from '../adapters/mqtt/topicRules.js';
 import type { MqttConfig } from '../config/site.js';
 import { withoutCredentials } from '../errors.js';
@@ -25,6 +27,10 @@ export interface MqttPartOptions {
   readonly site: string;
   readonly version: string;
   readonly intake: Intake;
+  /** Edge nodes that readings come from. */
+  readonly edgeNodes: SparkplugHost;
+  /** When the newest reading in the journal came [ms]; null where there is none. */
+  heardLast(): number | null;
   readonly clock: DaemonClock;
   readonly log: Log;
   readonly notices: Notices;
@@ -92,6 +98,7 @@ export class MqttPart {
       down: (reason) => {
         this.lost = reason;
         this.heard();
+        options.edgeNodes.linkDown();
         // By kind and minute: two clients with one client id would push each other out for ever.
         options.notices.warn(
           'mqtt_down',
@@ -140,8 +147,16 @@ export class MqttPart {
     return this.link.deliver(topic, payload, DELIVER_MS);
   }
 
+  /** Sends a command to an edge node, at most once; false where it cannot be sent. */
+  command(topic: string, payload: Buffer): boolean {
+    return this.link.command(topic, payload);
+  }
+
   unsubscribe(topic: string): void {
     this.link.unsubscribe(topic);
+    // An edge node's devices are subscribed by a filter.
+    const parsed = parseTopic(topic);
+    if (parsed?.device) this.link.unsubscribe(topicOf(parsed, parsed.kind, '+'));
   }
 
   async stopBroker(): Promise<void> {
@@ -158,6 +173,7 @@ export class MqttPart {
     });
     const limit = setTimeout(() => this.heard(), FIRST_WORD_MS);
     this.options.intake.start();
+    this.options.edgeNodes.start(this.options.heardLast());
     this.announcer.start();
     this.link.start();
     await heard;
@@ -166,6 +182,7 @@ export class MqttPart {
 
   /** What has come in is committed and acknowledged, the farewell said, then the link ended. */
   async stopLink(): Promise<void> {
+    this.options.edgeNodes.stop();
     this.options.intake.stop();
     this.announcer.stop();
     await this.link.stop();
@@ -192,6 +209,7 @@ export class MqttPart {
     this.refusal = null;
     this.options.notices.info('mqtt_up', `connected to the MQTT broker ${this.name}`);
     this.announcer.connected();
+    this.options.edgeNodes.linkUp();
     this.options.connected();
   }
 }

@@ -11,6 +11,9 @@ import {
   type Route,
 } from './payload.js';
 import { RecentReadings } from './recent.js';
+import { SPARKPLUG_COUNTS } from './sparkplug/counts.js';
+import type { SparkplugHost } from './sparkplug/host.js';
+import type { SparkplugReading } from './sparkplug/session.js';
 
 /** What the intake hands on; the shape of the journal's reading. */
 export interface IntakeReading {
@@ -28,6 +31,7 @@ export const INTAKE_COUNTS = [
   'repeated',
   'unknown_topic',
   ...PAYLOAD_FAULTS,
+  ...SPARKPLUG_COUNTS,
   'journal_failures',
   'lost_without_journal',
 ] as const;
@@ -36,6 +40,8 @@ export type IntakeCount = (typeof INTAKE_COUNTS)[number];
 export interface IntakeOptions {
   readonly units: readonly UnitDefinition[];
   readonly sources: readonly ChannelSource[];
+  /** Takes what comes from Sparkplug's edge nodes; absent: nothing does. */
+  readonly sparkplug?: Pick<SparkplugHost, 'topics' | 'receive' | 'remember'>;
   /** Wall clock [ms since 1970]. */
   now(): number;
   /** Writes readings to the disk; they are safe when it returns. May throw. */
@@ -95,7 +101,7 @@ export class Intake {
   }
 
   get topics(): string[] {
-    return [...this.routes.keys()];
+    return [...this.routes.keys(), ...(this.options.sparkplug?.topics ?? [])];
   }
 
   /** True while the last commit failed and readings wait for the next try. */
@@ -105,7 +111,10 @@ export class Intake {
 
   /** Readings already in the journal, newest last: what the broker may send once more. */
   remember(readings: Iterable<IntakeReading>): void {
-    for (const reading of readings) this.recent.seen(reading);
+    for (const reading of readings) {
+      this.recent.seen(reading);
+      this.options.sparkplug?.remember(reading);
+    }
   }
 
   start(): void {
@@ -121,11 +130,19 @@ export class Intake {
     if (delivery.acknowledge) this.unacknowledged.push(delivery.acknowledge);
     const routes = this.routes.get(delivery.topic);
     if (routes) for (const route of routes) this.takeIn(route, delivery);
-    else {
+    else if (!this.takeSparkplug(delivery)) {
       count('unknown_topic', 1);
       notice('unknown_topic', `nothing is configured for topic ${delivery.topic}`);
       this.options.unwanted(delivery.topic);
     }
+    this.flushSoon();
+  }
+
+  /** Takes readings that no message brought, such as that a channel is missing. */
+  add(readings: readonly SparkplugReading[]): void {
+    if (this.stopped || readings.length === 0) return;
+    this.unflushed++;
+    this.queueAll(readings, this.options.now());
     this.flushSoon();
   }
 
@@ -184,6 +201,18 @@ export class Intake {
     for (const reading of parsePayload(route, text, arrival_ms, fault)) {
       this.queue(route.source.unit, reading, arrival_ms);
     }
+  }
+
+  /** false where it is no message of an edge node that is configured. */
+  private takeSparkplug(delivery: Delivery): boolean {
+    const arrival_ms = this.options.now();
+    const readings = this.options.sparkplug?.receive(delivery, arrival_ms) ?? null;
+    this.queueAll(readings ?? [], arrival_ms);
+    return readings !== null;
+  }
+
+  private queueAll(readings: readonly SparkplugReading[], arrival_ms: number): void {
+    for (const reading of readings) this.queue(reading.unit, reading, arrival_ms);
   }
 
   private queue(unit: string, found: PayloadReading, arrival_ms: number): void {

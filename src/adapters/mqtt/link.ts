@@ -140,6 +140,19 @@ export class MqttLink {
   }
 
   /**
+   * Publishes a message that is not retained, at most once.
+   * @returns false where there is no connection, or too many are on their way: it is not sent
+   */
+  command(topic: string, payload: Buffer): boolean {
+    if (!this.isUp || !this.client || this.telling >= MOST_TELLING) return false;
+    this.telling++;
+    this.client.publish(topic, payload, { qos: 0, retain: false }, () => {
+      this.telling--;
+    });
+    return true;
+  }
+
+  /**
    * Publishes a message that is not retained and waits for the broker's word that it has it.
    * @throws Error where there is no connection, or none within the time
    */

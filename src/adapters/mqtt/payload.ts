@@ -37,14 +37,17 @@ export interface Route {
   readonly channels: readonly RoutedChannel[];
 }
 
-interface RoutedChannel {
+export interface RoutedChannel {
   readonly definition: ChannelDefinition;
   readonly toSi: (raw: number) => number;
 }
 
 export function makeRoute(source: ChannelSource, channels: readonly ChannelDefinition[]): Route {
-  const routed = channels.map((definition) => ({ definition, toSi: rawToSi(definition) }));
-  return { source, channels: routed };
+  return { source, channels: channels.map(routedChannel) };
+}
+
+export function routedChannel(definition: ChannelDefinition): RoutedChannel {
+  return { definition, toSi: rawToSi(definition) };
 }
 
 /**
@@ -116,7 +119,7 @@ function valuesOf(route: Route, message: Record<string, unknown>): readonly unkn
 }
 
 /** A raw value in SI, null where it is no value of this channel. */
-function numberOf({ definition, toSi }: RoutedChannel, raw: unknown): number | null {
+export function numberOf({ definition, toSi }: RoutedChannel, raw: unknown): number | null {
   const { kind } = definition.role;
   const si = typeof raw === 'number' ? toSi(raw) : wordOf(kind, raw);
   // JSON has no NaN, but 1e999 is an infinity.

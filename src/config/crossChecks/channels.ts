@@ -190,7 +190,7 @@ function silenceFaults(unit: UnitBlock, path: Path): CrossFault[] {
     })),
   ];
   return blocks.flatMap(({ r, path: at }) =>
-    r.kind === 'by_exception' && r.longest_silence_s < unit.scan_period_s
+    r?.kind === 'by_exception' && r.longest_silence_s < unit.scan_period_s
       ? [
           cross(
             [...at, 'longest_silence_s'],

@@ -9,6 +9,7 @@ import { lateFaults } from './late.js';
 import { limitFaults } from './limits.js';
 import { machineFaults } from './machine.js';
 import { operationFaults } from './operation.js';
+import { sparkplugFaults } from './sparkplug.js';
 import { storeFaults } from './store.js';
 
 /** Everything that no single key can tell: names used twice, values that contradict each other. */
@@ -22,6 +23,7 @@ export function crossFaults(site: SiteBlock): CrossFault[] {
     ),
     ...site.units.flatMap((unit, u) => unitFaults(unit, unitPath(u))),
     ...topicFaults(site),
+    ...sparkplugFaults(site),
     ...serviceFaults(site),
     ...lateFaults(site),
     ...accessFaults(site),
@@ -63,6 +65,7 @@ function topicFaults(site: SiteBlock): CrossFault[] {
       });
     });
     unit.channels.forEach((channel, c) => {
+      if (channel.payload === 'sparkplug') return;
       entries.push({
         name: channelTopic(unit, channel, prefix),
         path: ['units', u, 'channels', c, 'topic'],

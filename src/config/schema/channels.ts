@@ -50,9 +50,53 @@ const byException = z.strictObject({
   ),
 });
 export const reporting = section(
-  z.discriminatedUnion('kind', [periodic, byException]).default({ kind: 'periodic' }),
+  z.discriminatedUnion('kind', [periodic, byException]).optional(),
   'How the source reports: at its period, or by exception with a deadband (a silent channel is then held).',
+  'periodic; for payload sparkplug by exception, with deadband 0 and a silence of a day',
 );
+
+/** Parts of a Sparkplug topic: MQTT's own signs would make other topics of them. */
+const sparkplugName = () =>
+  worded(
+    z
+      .string()
+      .min(1)
+      .max(128)
+      .regex(/^[^+#/\p{Cc}]+$/u),
+    'a name without +, # and /',
+  );
+/** A nearer block goes before a wider one. */
+const ofUnit = "the unit's; needed there or here";
+/** Where the metrics of a unit, a string or a channel are. */
+export const sparkplugSchema = section(
+  z
+    .strictObject({
+      group: key(
+        sparkplugName(),
+        '-',
+        'Sparkplug group of the edge node.',
+        'Quarry',
+        ofUnit,
+      ).optional(),
+      node: key(sparkplugName(), '-', 'Edge node.', 'PLC1', ofUnit).optional(),
+      device: key(
+        sparkplugName(),
+        '-',
+        'Device at the edge node that has the metrics.',
+        'Stores',
+        "the unit's, else metrics are those of the edge node itself",
+      ).optional(),
+    })
+    .optional(),
+  'Where its metrics come from, for payload sparkplug.',
+  'that of the unit',
+);
+/** An edge node of rockhour's own. */
+export const sparkplugNodeSchema = z.strictObject({
+  group: key(sparkplugName(), '-', 'Group of rockhour as an edge node.', 'Quarry'),
+  node: key(sparkplugName(), '-', 'Name of rockhour as an edge node.', 'rockhour'),
+});
+const metricName = () => z.string().min(1).max(256);
 
 const thermocoupleUnit = {
   unit: key(
@@ -114,11 +158,19 @@ export const stringSchema = z.strictObject({
     'TT_{store}_{string}_{n}',
   ).default('{store}_{string}_{n}'),
   payload: key(
-    z.enum(['value', 'array']),
+    z.enum(['value', 'array', 'sparkplug']),
     '-',
-    'array: one message carries the readings of the string in the order of positions_m; value: one message per thermocouple.',
+    'array: one message carries the readings of the string in the order of positions_m; value: one message per thermocouple; sparkplug: metrics of an edge node.',
     'array',
   ).default('array'),
+  metric: key(
+    z.union([metricName(), z.array(metricName()).min(1).max(400)]),
+    '-',
+    'Metrics of the thermocouples, for payload sparkplug: a list, one for each position, or a pattern with {id}, {store}, {string} and {n}.',
+    'Hot/Axis/TT{n}',
+    'the channel ids',
+  ).optional(),
+  sparkplug: sparkplugSchema,
   topic: key(
     topic(),
     '-',
@@ -146,6 +198,20 @@ const channelBasics = {
     'plant/unit1/flow',
     '<mqtt.in_prefix>/<unit>/<channel id>',
   ).optional(),
+  payload: key(
+    z.enum(['value', 'sparkplug']),
+    '-',
+    'value: a message per reading; sparkplug: a metric of an edge node.',
+    'value',
+  ).default('value'),
+  metric: key(
+    metricName(),
+    '-',
+    'Metric of the channel, for payload sparkplug.',
+    'Loop/Flow',
+    'the id of the channel',
+  ).optional(),
+  sparkplug: sparkplugSchema,
   reporting,
 };
 const measures = <T extends string>(word: T, what: string) => key(z.literal(word), '-', what, word);

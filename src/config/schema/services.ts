@@ -2,7 +2,7 @@ import { z } from 'zod';
 import { ROLES } from '../../access/role.js';
 import { HASH_PATTERN, HASH_WORDS, NAME_PATTERN, NAME_WORDS } from '../../access/token.js';
 import { MOST_TOKENS } from '../../access/tokensFile.js';
-import { topic } from './channels.js';
+import { sparkplugNodeSchema, topic } from './channels.js';
 import { key, positive, section, worded } from './key.js';
 
 const port = () => z.int().min(0).max(65535);
@@ -127,6 +127,11 @@ export const mqttSchema = z.strictObject({
     'Topics of what rockhour publishes start with this.',
     'rockhour',
   ).default('rockhour'),
+  sparkplug_node: section(
+    sparkplugNodeSchema.optional(),
+    'rockhour as a Sparkplug edge node with a device for each unit, beside what it publishes as JSON.',
+    'it is none',
+  ),
 });
 
 /** Time-series database that the estimates are forwarded to. */

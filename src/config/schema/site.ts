@@ -1,6 +1,6 @@
 import { z } from 'zod';
 import { alarmsSchema } from './alarms.js';
-import { channelSchema } from './channels.js';
+import { channelSchema, sparkplugSchema } from './channels.js';
 import { id, key, positive, section } from './key.js';
 import { lateSchema } from './late.js';
 import { machineSchema } from './machine.js';
@@ -43,6 +43,11 @@ export const unitSchema = z.strictObject({
     'the rated power',
   ).optional(),
   hours_every_min: key(positive(1440), 'min', 'How often they are computed.', 10).default(10),
+  sparkplug: section(
+    sparkplugSchema,
+    'Where metrics come from by Sparkplug, for all strings and channels that do not say otherwise.',
+    'each says it',
+  ),
   stores: section(
     z.array(section(storeSchema, 'A packed bed.')).min(1).max(2),
     'A hot store alone, or a hot and a cold one.',

@@ -1,0 +1,207 @@
+import type { SparkplugSource } from '../../../config/site.js';
+import type { UnitDefinition } from '../../../core/definitions.js';
+import type { Delivery } from '../link.js';
+import { type PayloadFault, routedChannel } from '../payload.js';
+import type { SparkplugCount } from './counts.js';
+import { readPayload, writePayload } from './messages.js';
+import { EdgeSession, type SparkplugChannel, type SparkplugReading } from './session.js';
+import { filtersOf, type NodeName, parseTopic, topicOf } from './topics.js';
+import { DATATYPE } from './values.js';
+
+export interface SparkplugHostOptions {
+  readonly units: readonly UnitDefinition[];
+  readonly sources: readonly SparkplugSource[];
+  readonly future_tolerance_ms: number;
+  /** Wall clock [ms since 1970]. */
+  now(): number;
+  /** A clock that is never set [ms]. */
+  steady(): number;
+  count(name: SparkplugCount | PayloadFault): void;
+  notice(kind: SparkplugCount | PayloadFault, text: string): void;
+  /** Sends a command to an edge node; false where it cannot be sent. */
+  command(topic: string, payload: Buffer): boolean;
+  /** Readings that no message brought: what is missing since a time. */
+  add(readings: readonly SparkplugReading[]): void;
+}
+
+/** An edge node is asked to be born again at most so often [ms]. */
+export const REBIRTH_EVERY_MS = 10_000;
+/** A connection lost for less than this ends nothing: brokers restart [ms]. */
+export const LOST_AFTER_MS = 60_000;
+const TICK_MS = 1000;
+
+interface Node {
+  readonly session: EdgeSession;
+  /** To be born again: asked as soon as it may be. */
+  isWanted: boolean;
+  mayAsk_ms: number;
+}
+
+/** How an edge node is, for health. */
+export interface EdgeNodeState {
+  readonly name: string;
+  /** Who has no birth or is dead, in words; empty where all live. */
+  readonly absent: readonly string[];
+}
+
+/**
+ * Readings by Sparkplug B 3.0.0: a session per configured edge node, and requests to be born again
+ * where one is not whole. rockhour is no primary host: it publishes no STATE.
+ */
+export class SparkplugHost {
+  private readonly nodes = new Map<string, Node>();
+  private found: SparkplugReading[] = [];
+  private lost: { readonly time_ms: number; readonly since_ms: number } | null = null;
+  private timer: NodeJS.Timeout | null = null;
+
+  constructor(private readonly options: SparkplugHostOptions) {
+    const byNode = new Map<string, { name: NodeName; channels: SparkplugChannel[] }>();
+    for (const source of options.sources) {
+      const { group, node, unit, channel, device, metric } = source;
+      const definition = options.units
+        .find(({ id }) => id === unit)
+        ?.channels.find(({ id }) => id === channel);
+      if (definition === undefined) {
+        throw new RangeError(`sources must name channels of units, got ${unit}/${channel}`);
+      }
+      const key = keyOf(source);
+      const entry = byNode.get(key) ?? { name: { group, node }, channels: [] };
+      entry.channels.push({ unit, routed: routedChannel(definition), device, metric });
+      byNode.set(key, entry);
+    }
+    for (const [key, { name, channels }] of byNode) {
+      const session = new EdgeSession(name, channels, {
+        future_tolerance_ms: options.future_tolerance_ms,
+        count: (count) => options.count(count),
+        fault: (fault, text) => {
+          options.count(fault);
+          options.notice(fault, text);
+        },
+        read: (reading) => this.found.push(reading),
+        rebirth: () => this.want(key),
+      });
+      this.nodes.set(key, { session, isWanted: false, mayAsk_ms: Number.NEGATIVE_INFINITY });
+    }
+  }
+
+  get topics(): string[] {
+    return [...this.nodes.values()].flatMap(({ session }) => filtersOf(session.name));
+  }
+
+  get states(): EdgeNodeState[] {
+    return [...this.nodes.values()].map(({ session }) => ({
+      name: `${session.name.group}/${session.name.node}`,
+      absent: session.absent,
+    }));
+  }
+
+  /** A reading that is in the journal already. */
+  remember(reading: {
+    readonly unit: string;
+    readonly channel: string;
+    readonly time_ms: number;
+    readonly arrival_ms: number;
+  }): void {
+    const { unit, channel, time_ms, arrival_ms } = reading;
+    for (const { session } of this.nodes.values()) {
+      session.remember(unit, channel, time_ms, arrival_ms);
+    }
+  }
+
+  /**
+   * @param heard_ms when the newest reading in the journal came [ms]: what was told until then stands
+   *                 no longer, since nobody was there to hear a death; null where there is none
+   */
+  start(heard_ms: number | null): void {
+    if (this.nodes.size === 0) return;
+    this.timer ??= setInterval(() => this.tick(), TICK_MS);
+    if (heard_ms !== null) this.forgetAll(heard_ms + 1);
+  }
+
+  stop(): void {
+    if (this.timer) clearInterval(this.timer);
+    this.timer = null;
+  }
+
+  /** Connected and subscribed: what was said meanwhile is not known. */
+  linkUp(): void {
+    this.lost = null;
+    for (const key of this.nodes.keys()) this.want(key);
+  }
+
+  linkDown(): void {
+    this.lost ??= { time_ms: this.options.now(), since_ms: this.options.steady() };
+  }
+
+  /** The readings of a message; null where it is of no edge node that is configured. Never throws. */
+  receive({ topic, payload, retained, duplicate }: Delivery, arrival_ms: number) {
+    const parsed = parseTopic(topic);
+    const node = parsed && this.nodes.get(keyOf(parsed));
+    if (!parsed || !node) return null;
+    const { count, notice, steady } = this.options;
+    if (retained === true) {
+      count('sparkplug_retained');
+      notice('sparkplug_retained', `a retained message on ${topic} is not used`);
+      return [];
+    }
+    const read = payload.length === 0 ? 'garbled' : readPayload(payload);
+    if (typeof read === 'string') {
+      count(`sparkplug_${read}`);
+      notice(`sparkplug_${read}`, `topic ${topic}: ${payload.length} bytes, ${read}`);
+      return [];
+    }
+    const { kind, device } = parsed;
+    if (kind === 'NBIRTH') node.isWanted = false;
+    node.session.receive(kind, device, read, arrival_ms, duplicate, steady());
+    return this.takeFound();
+  }
+
+  tick(): void {
+    const { now, steady, add } = this.options;
+    const steady_ms = steady();
+    for (const { session } of this.nodes.values()) session.tick(now(), steady_ms);
+    for (const node of this.nodes.values()) this.ask(node);
+    const found = this.takeFound();
+    if (found.length > 0) add(found);
+    if (this.lost && steady_ms - this.lost.since_ms >= LOST_AFTER_MS) {
+      const { time_ms } = this.lost;
+      this.lost = null;
+      this.forgetAll(time_ms);
+    }
+  }
+
+  private forgetAll(time_ms: number): void {
+    for (const { session } of this.nodes.values()) session.lost(time_ms);
+    const found = this.takeFound();
+    if (found.length > 0) this.options.add(found);
+  }
+
+  private takeFound(): SparkplugReading[] {
+    const { found } = this;
+    this.found = [];
+    return found;
+  }
+
+  private want(key: string): void {
+    const node = this.nodes.get(key)!;
+    node.isWanted = true;
+    this.ask(node);
+  }
+
+  private ask(node: Node): void {
+    const { command, count, now, steady } = this.options;
+    if (!node.isWanted || steady() < node.mayAsk_ms) return;
+    const timestamp = now();
+    const metric = { name: REBIRTH, timestamp, datatype: DATATYPE.Boolean, booleanValue: true };
+    const payload = writePayload({ timestamp, metrics: [metric] });
+    if (!command(topicOf(node.session.name, 'NCMD'), payload)) return;
+    count('sparkplug_rebirth_requests');
+    node.isWanted = false;
+    node.mayAsk_ms = steady() + REBIRTH_EVERY_MS;
+  }
+}
+
+/** Metric by which an edge node is asked to be born again (6.4.19). */
+export const REBIRTH = 'Node Control/Rebirth';
+
+const keyOf = ({ group, node }: NodeName) => `${group}/${node}`;

@@ -1,0 +1,354 @@
+import {
+  numberOf,
+  type PayloadFault,
+  type PayloadReading,
+  type Quality,
+  type RoutedChannel,
+} from '../payload.js';
+import type { SparkplugCount, SparkplugFate } from './counts.js';
+import { aliasKey, type Metric, type Payload, sent, wide } from './messages.js';
+import type { MessageKind, NodeName } from './topics.js';
+import { metricValue, qualityOf } from './values.js';
+
+export interface SparkplugReading extends PayloadReading {
+  readonly unit: string;
+}
+
+/** A channel of this edge node, or of a device at it. */
+export interface SparkplugChannel {
+  readonly unit: string;
+  readonly routed: RoutedChannel;
+  /** null: the edge node itself. */
+  readonly device: string | null;
+  readonly metric: string;
+}
+
+export interface SessionHooks {
+  /** How far ahead of its arrival a source time is believed [ms]. */
+  readonly future_tolerance_ms: number;
+  count(name: SparkplugCount): void;
+  fault(name: PayloadFault | 'sparkplug_not_in_birth', text: string): void;
+  read(reading: SparkplugReading): void;
+  /** What is known of the node is no longer whole: it is to be born again. */
+  rebirth(): void;
+}
+
+/** `awaiting`: its edge node was born anew, and its own birth has to follow at once. */
+type Life = 'unknown' | 'awaiting' | 'alive' | 'dead';
+
+interface Known {
+  readonly channel: SparkplugChannel;
+  datatype: number | undefined;
+  /** Newest source time believed [ms]. */
+  newest_ms: number;
+  /** The newest that was told of it is that it has no value. */
+  isMissing: boolean;
+}
+
+/** The edge node itself, or a device at it. */
+interface Part {
+  readonly device: string | null;
+  life: Life;
+  since_ms: number;
+  readonly byMetric: Map<string, Known>;
+  /** Of the running birth; null: a metric that nothing is configured for. */
+  aliases: Map<number | string, Known | null>;
+}
+
+/** DBIRTHs follow the NBIRTH at once (6.4.24); a device silent for so long is gone [ms]. */
+const AWAITED_MS = 10_000;
+/** Greatest time that a Date can hold [ms], ECMA-262 section 21.4.1.1. */
+const GREATEST_MS = 8.64e15;
+
+/**
+ * What is known of one edge node: whether it and its devices live, which connection it lives by
+ * (bdSeq), the sequence number of its last message, the aliases of its births.
+ *
+ * Its channels report by exception, so silence means no change, for as long as the node lives. Deaths
+ * end that: every channel gets a bad reading at the death's time, and so does a channel that a birth
+ * does not name. A birth tells what stands at its time, whenever that had changed last.
+ */
+export class EdgeSession {
+  private readonly parts = new Map<string | null, Part>();
+  private bdSeq: number | null = null;
+  private seq: number | null = null;
+
+  constructor(
+    readonly name: NodeName,
+    channels: readonly SparkplugChannel[],
+    private readonly hooks: SessionHooks,
+  ) {
+    this.addPart(null);
+    for (const channel of channels) {
+      const part = this.parts.get(channel.device) ?? this.addPart(channel.device);
+      part.byMetric.set(channel.metric, {
+        ...{ channel, datatype: undefined, isMissing: false },
+        newest_ms: Number.NEGATIVE_INFINITY,
+      });
+    }
+  }
+
+  get isAlive(): boolean {
+    return this.own.life === 'alive';
+  }
+
+  /** Who has no birth or is dead, in words; empty where all live. */
+  get absent(): string[] {
+    const words = { unknown: 'not born yet', awaiting: 'not born again', dead: 'dead' } as const;
+    return [...this.parts.values()].flatMap(({ device, life }) =>
+      life === 'alive' ? [] : [`${device ?? 'edge node'} ${words[life]}`],
+    );
+  }
+
+  /**
+   * Takes a message in.
+   * @param duplicate the broker may have sent it before
+   * @param steady_ms a clock that is never set, for waiting [ms]
+   */
+  receive(
+    kind: MessageKind,
+    device: string | null,
+    payload: Payload,
+    arrival_ms: number,
+    duplicate: boolean,
+    steady_ms: number,
+  ): void {
+    const fate = this.take(kind, device, payload, arrival_ms, duplicate, steady_ms);
+    this.hooks.count(fate);
+    if (fate === 'sparkplug_before_birth' || fate === 'sparkplug_after_death') this.hooks.rebirth();
+  }
+
+  /** What time brings: devices whose birth has not followed that of their node are gone. */
+  tick(arrival_ms: number, steady_ms: number): void {
+    for (const part of this.parts.values()) {
+      if (part.life !== 'awaiting' || steady_ms - part.since_ms < AWAITED_MS) continue;
+      this.end(part, arrival_ms, 'dead');
+    }
+  }
+
+  /** From this time on nothing is known: the connection was lost, or rockhour was not there. */
+  lost(time_ms: number): void {
+    for (const part of this.parts.values()) this.end(part, time_ms, 'unknown');
+    this.seq = null;
+  }
+
+  /** A reading that is in the journal already. */
+  remember(unit: string, channel: string, time_ms: number, arrival_ms: number): void {
+    for (const { byMetric } of this.parts.values()) {
+      for (const known of byMetric.values()) {
+        const { routed, unit: own } = known.channel;
+        if (own !== unit || routed.definition.id !== channel) continue;
+        this.heard(known, time_ms, arrival_ms);
+      }
+    }
+  }
+
+  private get own(): Part {
+    return this.parts.get(null)!;
+  }
+
+  private addPart(device: string | null): Part {
+    const part: Part = {
+      ...{ device, life: 'unknown', since_ms: 0 },
+      ...{ byMetric: new Map(), aliases: new Map() },
+    };
+    this.parts.set(device, part);
+    return part;
+  }
+
+  private take(
+    kind: MessageKind,
+    device: string | null,
+    payload: Payload,
+    arrival_ms: number,
+    duplicate: boolean,
+    steady_ms: number,
+  ): SparkplugFate {
+    const { own } = this;
+    if (kind === 'NBIRTH') return this.nodeBorn(payload, arrival_ms, steady_ms);
+    if (kind === 'NDEATH') {
+      if (own.life !== 'alive' || bdSeqOf(payload) !== this.bdSeq)
+        return 'sparkplug_foreign_deaths';
+      // Its will was written when it connected: the time of arrival is that of the death (5.5).
+      for (const one of this.parts.values()) this.end(one, arrival_ms, 'dead');
+      return 'sparkplug_deaths';
+    }
+    if (own.life === 'dead') return 'sparkplug_after_death';
+    if (own.life !== 'alive') return 'sparkplug_before_birth';
+    this.follow(payload, duplicate);
+    const part = this.parts.get(device);
+    if (kind === 'DBIRTH') {
+      if (part) this.born(part, payload, arrival_ms);
+      return 'sparkplug_births';
+    }
+    if (kind === 'DDEATH') {
+      if (part) this.end(part, payloadTime(payload) ?? arrival_ms, 'dead');
+      return 'sparkplug_deaths';
+    }
+    if (part?.life === 'dead') return 'sparkplug_after_death';
+    if (part && part.life !== 'alive') return 'sparkplug_before_birth';
+    if (part) this.data(part, payload, arrival_ms);
+    return 'sparkplug_data';
+  }
+
+  private nodeBorn(payload: Payload, arrival_ms: number, steady_ms: number): SparkplugFate {
+    this.bdSeq = bdSeqOf(payload);
+    this.seq = seqOf(payload);
+    for (const part of this.parts.values()) {
+      if (part.life !== 'alive' || part.device === null) continue;
+      part.life = 'awaiting';
+      part.since_ms = steady_ms;
+    }
+    this.born(this.own, payload, arrival_ms);
+    return 'sparkplug_births';
+  }
+
+  /** Sequence numbers run from 0 to 255 and on at 0 over all messages of a node but its death (6.4.6). */
+  private follow(payload: Payload, duplicate: boolean): void {
+    const seq = seqOf(payload);
+    const last = this.seq;
+    if (duplicate && seq === last) return;
+    this.seq = seq;
+    if (last === null || seq === (last + 1) % 256) return;
+    this.hooks.count('sparkplug_seq_gaps');
+    this.hooks.rebirth();
+  }
+
+  private born(part: Part, payload: Payload, arrival_ms: number): void {
+    part.life = 'alive';
+    part.aliases = new Map();
+    const named = new Set<Known>();
+    for (const metric of payload.metrics ?? []) {
+      const known = part.byMetric.get(metric.name ?? '') ?? null;
+      if (sent(metric, 'alias')) part.aliases.set(aliasKey(metric.alias!), known);
+      if (known === null) {
+        this.hooks.count('sparkplug_unused_metrics');
+        continue;
+      }
+      named.add(known);
+      known.datatype = sent(metric, 'datatype') ? metric.datatype : undefined;
+      this.value(known, metric, payload, arrival_ms, true);
+    }
+    for (const known of part.byMetric.values()) {
+      if (named.has(known)) continue;
+      const { group, node } = this.name;
+      const where = [group, node, part.device].filter((one) => one !== null).join('/');
+      this.hooks.fault(
+        'sparkplug_not_in_birth',
+        `${where}: its birth names no metric ${known.channel.metric}`,
+      );
+      this.makeMissing(known, payloadTime(payload) ?? arrival_ms);
+    }
+  }
+
+  private data(part: Part, payload: Payload, arrival_ms: number): void {
+    for (const metric of payload.metrics ?? []) {
+      const hasAlias = sent(metric, 'alias');
+      const byAlias = hasAlias ? part.aliases.get(aliasKey(metric.alias!)) : undefined;
+      const known = byAlias ?? part.byMetric.get(metric.name ?? '');
+      if (known) this.value(known, metric, payload, arrival_ms, false);
+      else if (hasAlias && byAlias === undefined && !sent(metric, 'name')) {
+        this.hooks.count('sparkplug_unknown_aliases');
+        this.hooks.rebirth();
+      } else this.hooks.count('sparkplug_unused_metrics');
+    }
+  }
+
+  private value(
+    known: Known,
+    metric: Metric,
+    payload: Payload,
+    arrival_ms: number,
+    isBirth: boolean,
+  ): void {
+    const { routed } = known.channel;
+    const text = `metric ${known.channel.metric} of ${this.name.group}/${this.name.node}`;
+    const fault = (name: PayloadFault) => this.hooks.fault(name, text);
+    const isHistorical = sent(metric, 'isHistorical') && metric.isHistorical === true;
+    const payload_ms = payloadTime(payload);
+    let time_ms = sent(metric, 'timestamp') ? wide(metric.timestamp!) : payload_ms;
+    if (time_ms === null) {
+      fault('without_time');
+      time_ms = arrival_ms;
+    }
+    if (!(time_ms <= GREATEST_MS)) {
+      fault('malformed');
+      return;
+    }
+    const isExceptional = routed.definition.reporting.kind === 'by_exception';
+    if (isBirth && isExceptional && !isHistorical) {
+      // A birth comes after the death before it, also by a clock that is behind rockhour's.
+      time_ms = Math.max(time_ms, payload_ms ?? time_ms, known.newest_ms);
+    }
+    const { value, quality } = this.judged(known, metric, fault);
+    if (!isHistorical && time_ms >= known.newest_ms) known.isMissing = Number.isNaN(value);
+    if (!isHistorical) this.heard(known, time_ms, arrival_ms);
+    this.read(known, time_ms, value, quality);
+  }
+
+  private judged(
+    known: Known,
+    metric: Metric,
+    fault: (name: PayloadFault) => void,
+  ): { value: number; quality: Quality } {
+    const bad = { value: Number.NaN, quality: 'bad' } as const;
+    if (sent(metric, 'isNull') && metric.isNull === true) {
+      fault('missing_value');
+      return bad;
+    }
+    const quality = qualityOf(metric);
+    if (quality === null) fault('unknown_quality');
+    if (quality === null || quality === 'bad') return bad;
+    const datatype = sent(metric, 'datatype') ? metric.datatype : known.datatype;
+    const value = numberOf(known.channel.routed, metricValue(metric, datatype));
+    if (value !== null) return { value, quality };
+    fault('bad_element');
+    return bad;
+  }
+
+  /** A time too far ahead is not believed anywhere, and must not hold up what comes after it. */
+  private heard(known: Known, time_ms: number, arrival_ms: number): void {
+    if (time_ms > arrival_ms + this.hooks.future_tolerance_ms) return;
+    known.newest_ms = Math.max(known.newest_ms, time_ms);
+  }
+
+  private end(part: Part, time_ms: number, life: Life): void {
+    part.life = life;
+    part.aliases = new Map();
+    for (const known of part.byMetric.values()) this.makeMissing(known, time_ms);
+  }
+
+  /** A bad reading, which ends holding. Not before the newest: what is older than that changes nothing. */
+  private makeMissing(known: Known, time_ms: number): void {
+    if (known.isMissing) return;
+    known.isMissing = true;
+    this.hooks.count('sparkplug_made_missing');
+    this.read(known, Math.max(time_ms, known.newest_ms), Number.NaN, 'bad');
+  }
+
+  private read({ channel }: Known, time_ms: number, value: number, quality: Quality): void {
+    const { unit, routed } = channel;
+    this.hooks.read({ unit, channel: routed.definition, time_ms, value, quality });
+  }
+}
+
+/** Time of a payload [ms since 1970]; null where it has none that a date can hold. */
+function payloadTime(payload: Payload): number | null {
+  if (!sent(payload, 'timestamp')) return null;
+  const time_ms = wide(payload.timestamp!);
+  return time_ms <= GREATEST_MS ? time_ms : null;
+}
+
+/** 0 where it was left out, as encoders do with zeros; null where it is no number of the sequence. */
+function seqOf(payload: Payload): number | null {
+  const seq = sent(payload, 'seq') ? wide(payload.seq!) : 0;
+  return seq <= 255 ? seq : null;
+}
+
+/** Number of the connection that a birth or a death belongs to. */
+function bdSeqOf(payload: Payload): number | null {
+  const metric = payload.metrics?.find(({ name }) => name === 'bdSeq');
+  if (metric === undefined) return null;
+  if (sent(metric, 'longValue')) return wide(metric.longValue!);
+  return sent(metric, 'intValue') ? metric.intValue! : null;
+}
