@@ -46,11 +46,13 @@ const many = (id: number, type: string) => ({ rule: 'repeated', id, type });
 /**
  * The messages of Sparkplug B, version 3.0.0, section 6.4, as far as they are used: numbers and types
  * are the specification's. Properties stay bytes, which is the same on the wire, and data sets,
- * templates, metadata and bodies are not told, so that they are skipped; nothing here nests itself.
+ * templates, metadata and bodies are not told, so that they are skipped; nothing here nests itself. The
+ * edition makes protobufjs tell a zero that was sent from a field that was not.
  */
 const root = protobuf.Root.fromJSON({
   nested: {
     Payload: {
+      edition: 'proto2',
       fields: {
         timestamp: one(1, 'uint64'),
         metrics: many(METRICS_ID, 'Metric'),
@@ -58,6 +60,7 @@ const root = protobuf.Root.fromJSON({
       },
     },
     Metric: {
+      edition: 'proto2',
       fields: {
         name: one(1, 'string'),
         alias: one(2, 'uint64'),
@@ -74,8 +77,12 @@ const root = protobuf.Root.fromJSON({
         stringValue: one(15, 'string'),
       },
     },
-    PropertySet: { fields: { keys: many(1, 'string'), values: many(2, 'PropertyValue') } },
+    PropertySet: {
+      edition: 'proto2',
+      fields: { keys: many(1, 'string'), values: many(2, 'PropertyValue') },
+    },
     PropertyValue: {
+      edition: 'proto2',
       fields: {
         datatype: one(1, 'uint32'),
         isNull: one(2, 'bool'),

@@ -38,8 +38,10 @@ export function metricValue(
   const signed = SIGNED[datatype];
   const unsigned = UNSIGNED[datatype];
   if (signed !== undefined || unsigned !== undefined) {
-    if (!sent(metric, 'intValue')) return null;
-    const raw = metric.intValue! >>> 0;
+    // UInt32 is sent as 64 bits by encoders whose language has no unsigned numbers.
+    const isLong = datatype === DATATYPE.UInt32 && sent(metric, 'longValue');
+    if (!isLong && !sent(metric, 'intValue')) return null;
+    const raw = isLong ? wide(metric.longValue!) : metric.intValue! >>> 0;
     return signed === undefined ? inBits(raw, unsigned!) : twosComplement(raw, signed);
   }
   switch (datatype) {
