@@ -30,9 +30,10 @@ import {
 import { Hourly } from './daemon/hourly.js';
 import { Housekeeping } from './daemon/housekeeping.js';
 import { futureTolerance, runnerMaker } from './daemon/makeRunners.js';
-import { MqttPart } from './daemon/mqttPart.js';
+import { MqttPart, type MqttPartOptions } from './daemon/mqttPart.js';
 import { Notices } from './daemon/notices.js';
 import { NotifyPart } from './daemon/notifyPart.js';
+import { OwnNodePart } from './daemon/ownNodePart.js';
 import { pageFolder } from './daemon/pageFolder.js';
 import { Pipeline } from './daemon/pipeline.js';
 import { DaemonService } from './daemon/plantService.js';
@@ -211,6 +212,7 @@ class RockhourDaemon implements Daemon {
       ...{ config: site.mqtt, site: site.name, version, intake: this.intake, clock, log, notices },
       counters,
       edgeNodes: this.edgeNodes,
+      ...this.makeOwnNode(history, notices),
       heardLast: () => journal.read(journal.lastSeq - 1, 1)[0]?.arrival_ms ?? null,
       units: [...this.runners.keys()],
       access: this.access,
@@ -412,6 +414,21 @@ class RockhourDaemon implements Daemon {
     return { pipeline: pipeline.backlog, ...forwarding, ...notify.backlogs };
   }
 
+  private makeOwnNode(history: History, notices: Notices): Pick<MqttPartOptions, 'ownNode'> {
+    const { site, clock, counters } = this;
+    const name = site.mqtt.sparkplug_node ?? null;
+    if (name === null) return {};
+    return {
+      ownNode: (login) =>
+        new OwnNodePart({
+          ...{ name, login, history, counters, notices, units: site.units, site: site.name },
+          ...{ version: this.options.version, client_id: site.mqtt.client_id },
+          now: () => clock.now(),
+          isStale: (unit) => this.service.now(unit)?.stale ?? true,
+        }),
+    };
+  }
+
   private health(): HealthPart[] {
     const { mqtt, pipeline, clock } = this;
     const { folder } = this.site.store;
@@ -423,6 +440,7 @@ class RockhourDaemon implements Daemon {
       ...this.notify.health,
       ...(this.steps ? [clockHealth(clock.now(), this.steps.last)] : []),
       ...this.edgeNodes.states.map(edgeNodeHealth),
+      ...(mqtt.ownNode ? [mqtt.ownNode.health] : []),
       ...[...this.runners.values()].map((runner) =>
         unitHealth(runner, pipeline.failures.get(runner.unit.id), clock, future),
       ),

@@ -1,5 +1,6 @@
 import { FORWARDER_COUNTS } from '../adapters/history/influxForwarder.js';
 import { INTAKE_COUNTS } from '../adapters/mqtt/intake.js';
+import { OWN_NODE_COUNTS } from '../adapters/mqtt/sparkplug/ownNode.js';
 import { WEBHOOK_COUNTS } from '../adapters/notify/webhookForwarder.js';
 import { READING_FATES } from '../core/scan/assemble.js';
 import type { ScanCounts } from '../core/scanCounts.js';
@@ -79,6 +80,7 @@ export type CounterName =
   | (typeof OWN_COUNTS)[number]
   | (typeof IMPLAUSIBLE_COUNTS)[number]
   | (typeof INTAKE_COUNTS)[number]
+  | (typeof OWN_NODE_COUNTS)[number]
   | (typeof READING_FATES)[number]
   | (typeof FORWARDER_COUNTS)[number]
   | (typeof WEBHOOK_COUNTS)[number];
@@ -90,6 +92,7 @@ export class Counters {
   constructor() {
     for (const list of [
       INTAKE_COUNTS,
+      OWN_NODE_COUNTS,
       READING_FATES,
       OWN_COUNTS,
       IMPLAUSIBLE_COUNTS,

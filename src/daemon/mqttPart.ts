@@ -5,7 +5,7 @@ import { Announcer } from '../adapters/mqtt/announcer.js';
 import { EmbeddedBroker } from '../adapters/mqtt/broker.js';
 import type { DoorOptions } from '../adapters/mqtt/door.js';
 import type { Intake } from '../adapters/mqtt/intake.js';
-import { MqttLink } from '../adapters/mqtt/link.js';
+import { type LinkOptions, MqttLink } from '../adapters/mqtt/link.js';
 import type { SparkplugHost } from '../adapters/mqtt/sparkplug/host.js';
 import { parseTopic, topicOf } from '../adapters/mqtt/sparkplug/topics.js';
 import { TopicSet } from '../adapters/mqtt/topicRules.js';
@@ -15,6 +15,7 @@ import type { Log } from '../log.js';
 import type { DaemonClock } from './clock.js';
 import type { Counters } from './counters.js';
 import type { Notices } from './notices.js';
+import type { OwnNodePart, OwnNodePartOptions } from './ownNodePart.js';
 
 /** A start waits this long for the broker's first word; one that is away does not hold it up [ms]. */
 const FIRST_WORD_MS = 2000;
@@ -29,6 +30,8 @@ export interface MqttPartOptions {
   readonly intake: Intake;
   /** Edge nodes that readings come from. */
   readonly edgeNodes: SparkplugHost;
+  /** Makes rockhour an edge node that reaches the broker in this way; absent: it is none. */
+  ownNode?(login: OwnNodePartOptions['login']): OwnNodePart;
   /** When the newest reading in the journal came [ms]; null where there is none. */
   heardLast(): number | null;
   readonly clock: DaemonClock;
@@ -48,6 +51,8 @@ export interface MqttPartOptions {
 /** Everything about the broker: the embedded one where none is named, the link, what is said. */
 export class MqttPart {
   readonly announcer: Announcer;
+  /** rockhour as an edge node; null: it is none. */
+  readonly ownNode: OwnNodePart | null;
   private readonly link: MqttLink;
   private readonly broker: EmbeddedBroker | null;
   private readonly commands: AlarmCommands;
@@ -77,15 +82,10 @@ export class MqttPart {
     });
     this.broker =
       url === null ? new EmbeddedBroker(embedded_host, embedded_port, this.door()) : null;
+    this.ownNode = options.ownNode?.(this.login) ?? null;
     this.link = new MqttLink({
-      // Asked for at the start: the port of an embedded broker is known only then.
-      url: () => this.url,
       client_id: config.client_id,
-      username: this.broker?.login?.username ?? config.username,
-      password: this.broker?.login?.password ?? config.password,
-      tls: config.tls ?? null,
-      // The embedded broker speaks 3.1.1 only.
-      protocol: this.broker ? 4 : config.protocol,
+      ...this.login,
       qos: config.qos,
       topics: [...intake.topics, ...this.commands.topics],
       will: Announcer.will(config.out_prefix),
@@ -115,7 +115,23 @@ export class MqttPart {
       version: options.version,
       site: options.site,
       now: () => options.clock.now(),
+      also: this.ownNode?.node ?? null,
     });
+  }
+
+  /** How the broker is reached. */
+  private get login(): Pick<LinkOptions, 'url' | 'username' | 'password' | 'tls' | 'protocol'> {
+    const { broker } = this;
+    const { username, password, tls = null, protocol } = this.options.config;
+    return {
+      // Asked for at the start: the port of an embedded broker is known only then.
+      url: () => this.url,
+      username: broker?.login?.username ?? username,
+      password: broker?.login?.password ?? password,
+      tls,
+      // The embedded broker speaks 3.1.1 only.
+      protocol: broker ? 4 : protocol,
+    };
   }
 
   /** Address of the broker without name and password. */
@@ -176,6 +192,7 @@ export class MqttPart {
     this.options.edgeNodes.start(this.options.heardLast());
     this.announcer.start();
     this.link.start();
+    this.ownNode?.start();
     await heard;
     clearTimeout(limit);
   }
@@ -185,6 +202,7 @@ export class MqttPart {
     this.options.edgeNodes.stop();
     this.options.intake.stop();
     this.announcer.stop();
+    await this.ownNode?.stop();
     await this.link.stop();
   }
 

@@ -183,6 +183,20 @@ export class History {
     return new EventQueue(() => this.parts.database, receiver);
   }
 
+  /** A number kept under a name over restarts; null before the first. */
+  kept(name: string): number | null {
+    const value = this.parts.database.prepare('SELECT value FROM cursors WHERE name = ?').pluck();
+    return (value.get(name) as number | undefined) ?? null;
+  }
+
+  keep(name: string, value: number): void {
+    this.write(() =>
+      this.parts.database
+        .prepare('INSERT OR REPLACE INTO cursors (name, value) VALUES (?, ?)')
+        .run(name, value),
+    );
+  }
+
   /** Runs `write` in one transaction; SQLite's failures become errors of the catalogue. */
   write<T>(write: () => T): T {
     try {

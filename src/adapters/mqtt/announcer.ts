@@ -3,6 +3,7 @@ import type { Headroom } from '../../core/plan/headroom.js';
 import type { LimitedAnswer } from '../../core/plan/limitedBy.js';
 import { statesOf, type WatchView } from '../../core/watch/causes.js';
 import type { WatchEvent } from '../../core/watch/event.js';
+import type { OwnNode } from './sparkplug/ownNode.js';
 
 /** As much of the link as announcing needs. */
 export interface Outlet {
@@ -51,6 +52,8 @@ export interface AnnouncerOptions {
   readonly site: string;
   /** Wall clock [ms since 1970]. */
   now(): number;
+  /** Who tells the same in another way; null: nobody. */
+  readonly also?: Pick<OwnNode, 'state' | 'dispatch' | 'alarms'> | null;
 }
 
 /** Spacing of the heartbeat [ms]. */
@@ -112,10 +115,12 @@ export class Announcer {
 
   state(estimate: Estimate): void {
     this.say(`${estimate.unit}/state`, estimate);
+    this.options.also?.state(estimate);
   }
 
   dispatch(unit: string, time: string, answers: readonly LimitedAnswer[]): void {
     this.say(`${unit}/dispatch`, { time, unit, answers });
+    this.options.also?.dispatch(unit, time, answers);
   }
 
   headroom(message: HeadroomMessage): void {
@@ -128,6 +133,7 @@ export class Announcer {
 
   alarms(message: AlarmsMessage): void {
     this.say(`${message.unit}/alarms`, message);
+    this.options.also?.alarms(message);
   }
 
   watch(view: WatchView): void {

@@ -253,7 +253,10 @@ function clientOptions(options: LinkOptions): IClientOptions {
 }
 
 /** A certificate is always checked; nothing older than TLS 1.2 is spoken. */
-function tlsOptions({ url, tls = null }: LinkOptions): IClientOptions & SecureContextOptions {
+export function tlsOptions({
+  url,
+  tls = null,
+}: Pick<LinkOptions, 'url' | 'tls'>): IClientOptions & SecureContextOptions {
   if (!/^(mqtts|tls|wss):/.test(url())) return {};
   const { ca = null, cert = null, key = null, server_name: servername = null } = tls ?? {};
   return {
