@@ -189,7 +189,9 @@ describe.each(both)('%s', (_, text) => {
   });
 
   it('shows in its blocks only commands of the project and of usual tools', () => {
-    const blocks = [...text.matchAll(/^```(?:sh)?\n([\s\S]*?)^```/gm)].map(([, block]) => block);
+    const blocks = [...text.matchAll(/^```(\w*)\n([\s\S]*?)^```/gm)].flatMap(
+      ([, language, block]) => (language === '' || language === 'sh' ? [block] : []),
+    );
     const first = blocks
       .flatMap((block) => (block as string).split('\n'))
       .map((line) => /^([a-z][\w.-]*) (?=[a-z-])/.exec(line)?.[1])

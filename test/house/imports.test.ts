@@ -48,7 +48,7 @@ const RULES: readonly Rule[] = [
     ],
     mayTypes: [core, /^src\/adapters\/http\//],
   },
-  adapter('mqtt', /^mqtt$/, /^aedes$/),
+  adapter('mqtt', /^mqtt$/, /^aedes$/, /^protobufjs\b/),
   adapter('history', /^better-sqlite3$/, /^influx$/),
   adapter(
     'http',

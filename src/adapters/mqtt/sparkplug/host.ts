@@ -50,11 +50,13 @@ export interface EdgeNodeState {
  */
 export class SparkplugHost {
   private readonly nodes = new Map<string, Node>();
+  private readonly sources: ReadonlyMap<string, SparkplugSource>;
   private found: SparkplugReading[] = [];
   private lost: { readonly time_ms: number; readonly since_ms: number } | null = null;
   private timer: NodeJS.Timeout | null = null;
 
   constructor(private readonly options: SparkplugHostOptions) {
+    this.sources = new Map(options.sources.map((source) => [channelKey(source), source]));
     const byNode = new Map<string, { name: NodeName; channels: SparkplugChannel[] }>();
     for (const source of options.sources) {
       const { group, node, unit, channel, device, metric } = source;
@@ -102,10 +104,9 @@ export class SparkplugHost {
     readonly time_ms: number;
     readonly arrival_ms: number;
   }): void {
-    const { unit, channel, time_ms, arrival_ms } = reading;
-    for (const { session } of this.nodes.values()) {
-      session.remember(unit, channel, time_ms, arrival_ms);
-    }
+    const source = this.sources.get(channelKey(reading));
+    const node = source && this.nodes.get(keyOf(source));
+    if (source && node) node.session.remember(source, reading.time_ms, reading.arrival_ms);
   }
 
   /**
@@ -203,5 +204,8 @@ export class SparkplugHost {
 
 /** Metric by which an edge node is asked to be born again (6.4.19). */
 export const REBIRTH = 'Node Control/Rebirth';
+
+const channelKey = ({ unit, channel }: Pick<SparkplugSource, 'unit' | 'channel'>) =>
+  `${unit}\n${channel}`;
 
 const keyOf = ({ group, node }: NodeName) => `${group}/${node}`;

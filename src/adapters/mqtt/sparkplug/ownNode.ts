@@ -35,7 +35,7 @@ export interface OwnNodeOptions {
 }
 
 /** A host that asks again and again is followed at most so often [ms]. */
-export const REBORN_EVERY_MS = 1000;
+export const REBORN_EVERY_MS = 500;
 
 interface Device {
   readonly unit: UnitDefinition;

@@ -132,15 +132,14 @@ export class EdgeSession {
     this.seq = null;
   }
 
-  /** A reading that is in the journal already. */
-  remember(unit: string, channel: string, time_ms: number, arrival_ms: number): void {
-    for (const { byMetric } of this.parts.values()) {
-      for (const known of byMetric.values()) {
-        const { routed, unit: own } = known.channel;
-        if (own !== unit || routed.definition.id !== channel) continue;
-        this.heard(known, time_ms, arrival_ms);
-      }
-    }
+  /** A reading of a channel that is in the journal already. */
+  remember(
+    { device, metric }: Pick<SparkplugChannel, 'device' | 'metric'>,
+    time_ms: number,
+    arrival_ms: number,
+  ): void {
+    const known = this.parts.get(device)?.byMetric.get(metric);
+    if (known) this.heard(known, time_ms, arrival_ms);
   }
 
   private get own(): Part {
