@@ -1,8 +1,9 @@
 import type { UMetric } from 'sparkplug-payload/lib/sparkplugbpayload.js';
 import { afterEach, describe, expect, it } from 'vitest';
 import { LOST_AFTER_MS, REBIRTH_EVERY_MS } from '../../../../src/adapters/mqtt/sparkplug/host.js';
+import { Assembler } from '../../../../src/core/scan/assemble.js';
 import { EdgeNode, encode, outside } from './edge.js';
-import { harness, T0 } from './hostHarness.js';
+import { edgeUnit, harness, T0 } from './hostHarness.js';
 
 const stopping: (() => void)[] = [];
 afterEach(() => {
@@ -230,6 +231,38 @@ describe('deaths', () => {
       ['mode@1', 'p@1', 'tt@9', 'e@1', 'valve@1'].map((id) => `${id}=NaN bad`),
     );
     expect(counts.sparkplug_made_missing).toBe(5);
+  });
+});
+
+describe('scans made of them', () => {
+  it('hold what stands while the node lives, have nothing from its death on, and the next birth after', () => {
+    const { receive, taken, edge, clock } = born();
+    const unit = edgeUnit();
+    const options = { deadline_ms: 0, future_tolerance_ms: 300_000, longest_gap_scans: 100 };
+    const assembler = new Assembler(unit, options);
+    const tt = unit.channels.findIndex(({ id }) => id === 'tt');
+    /** Value of tt in the scan that begins after so many periods, and whether it was held. */
+    const scan = (i: number) => {
+      for (const { channel, time_ms, arrival_ms, value } of taken()) {
+        const index = unit.channels.findIndex(({ id }) => id === channel);
+        assembler.add({ channel: index, time_ms, arrival_ms, value });
+      }
+      assembler.closeThrough(T0 / 30_000 + i);
+      const found = assembler.take()!.scan;
+      return [found.values[tt], found.held[tt]];
+    };
+    expect(scan(0)).toEqual([573.15, 0]);
+    expect(scan(1)).toEqual([573.15, 1]);
+    clock.ms = T0 + 61_000;
+    receive(edge.death());
+    expect(scan(2)).toEqual([Number.NaN, 0]);
+    expect(scan(3)).toEqual([Number.NaN, 0]);
+    edge.bdSeq = 1;
+    clock.ms = T0 + 121_000;
+    receive(edge.birth(clock.ms, [mode('charge')]));
+    receive(edge.deviceBirth('Bed', clock.ms, BED(310)));
+    expect(scan(4)).toEqual([583.15, 0]);
+    expect(scan(5)).toEqual([583.15, 1]);
   });
 });
 

@@ -65,13 +65,16 @@ export function harness() {
     intake.receive({ ...sent, duplicate: false, acknowledge: null, ...changes });
     intake.flush();
   };
+  const taken = () => {
+    intake.flush();
+    return rows.splice(0);
+  };
   /** What was written since the last time, as `channel@ms after T0=value quality`. */
   const news = () => {
-    intake.flush();
-    return rows.splice(0).map(({ channel, time_ms, value, quality }) => {
+    return taken().map(({ channel, time_ms, value, quality }) => {
       return `${channel}@${time_ms - T0}=${value} ${quality}`;
     });
   };
   const messages = () => SPARKPLUG_FATES.reduce((sum, name) => sum + (counts[name] ?? 0), 0);
-  return { intake, host, counts, asked, clock, receive, news, messages };
+  return { intake, host, counts, asked, clock, receive, taken, news, messages };
 }
