@@ -17,6 +17,8 @@ const shared = {
   pool: 'forks',
   testTimeout: limit_ms,
   hookTimeout: limit_ms,
+  // A busy machine may need seconds for what a person would see at once.
+  expect: { poll: { timeout: 10_000 } },
 } as const;
 
 export default defineConfig({
