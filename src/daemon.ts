@@ -442,7 +442,10 @@ class RockhourDaemon implements Daemon {
       ...this.edgeNodes.states.map(edgeNodeHealth),
       ...(mqtt.ownNode ? [mqtt.ownNode.health] : []),
       ...[...this.runners.values()].map((runner) =>
-        unitHealth(runner, pipeline.failures.get(runner.unit.id), clock, future),
+        unitHealth(
+          ...([runner, pipeline.failures.get(runner.unit.id), clock, future] as const),
+          this.rewinder.words(runner.unit.id),
+        ),
       ),
     ];
   }

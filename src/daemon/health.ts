@@ -74,12 +74,14 @@ export function unitHealth(
   failure: string | undefined,
   clock: DaemonClock,
   future: number,
+  late = '',
 ): HealthPart {
   const name = `unit ${runner.unit.id}`;
   if (failure !== undefined) return { name, ok: false, detail: `the last scan failed: ${failure}` };
   const ahead =
     future === 0 ? '' : `; ${future} readings stamped ahead of this machine's clock were not used`;
-  const told = `${ahead}${zonesOff(runner.wrongZones)}${lostAtStart(runner.lost)}`;
+  const rewound = late === '' ? '' : `; ${late}`;
+  const told = `${ahead}${rewound}${zonesOff(runner.wrongZones)}${lostAtStart(runner.lost)}`;
   if (runner.newest_ms === null) return { name, ok: false, detail: `no reading yet${told}` };
   const age_s = Math.max(0, (clock.now() - runner.newest_ms) / 1000);
   const ok = age_s <= runner.unit.watch.data_age_s.limit;

@@ -21,6 +21,7 @@ import type { OffersAsk } from '../core/plan/offerAsk.js';
 import type { OfferReport } from '../core/plan/offerReport.js';
 import type { KeptOffers } from '../core/plan/offerSummary.js';
 import type { AnsweredOffers } from '../core/plan/offerTable.js';
+import type { RewindRecord } from '../core/scan/rewindRecord.js';
 import type { WatchView } from '../core/watch/causes.js';
 import type { CycleRecord } from '../core/watch/cycleRecord.js';
 import type { WatchEvent } from '../core/watch/event.js';
@@ -199,6 +200,11 @@ export class DaemonService implements PlantService {
   ): CycleRecord[] {
     this.runner(unit);
     return this.parts.history.cycles.between(unit, from_ms, to_ms, kind, most);
+  }
+
+  rewinds(...[unit, ...ask]: Parameters<PlantService['rewinds']>): RewindRecord[] {
+    this.runner(unit);
+    return this.parts.history.rewinds.between(unit, ...ask);
   }
 
   bedReport(id: string, question: ReportQuestion): Promise<{ text: string; style: string }> {

@@ -219,6 +219,7 @@ describe.skipIf(!mosquitto)('a running daemon', () => {
       '/api/units/{unit}/history': ['', '?points=5', '?series=state_of_charge', '?format=csv'],
       '/api/units/{unit}/watch': [''],
       '/api/units/{unit}/cycles': [''],
+      '/api/units/{unit}/rewinds': [''],
       '/api/alarms': ['', '?unit=vellmoor'],
       '/api/events': ['', '?unit=vellmoor&most=3'],
       '/api/alarms/transitions': ['', '?unit=vellmoor&most=3'],

@@ -22,6 +22,7 @@ import { offerRoutes } from './routes/offers.js';
 import { planRoutes } from './routes/plan.js';
 import { profileRoutes } from './routes/profiles.js';
 import { reportRoutes } from './routes/report.js';
+import { rewindRoutes } from './routes/rewinds.js';
 import { scheduleRoutes } from './routes/schedule.js';
 import { statusRoutes } from './routes/status.js';
 import { streamRoutes } from './routes/stream.js';
@@ -207,6 +208,7 @@ export async function createHttpApp(
         scheduleRoutes,
         historyRoutes,
         watchRoutes,
+        rewindRoutes,
         reportRoutes,
         alarmRoutes,
         streamRoutes,

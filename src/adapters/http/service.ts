@@ -9,6 +9,7 @@ import type { OffersAsk } from '../../core/plan/offerAsk.js';
 import type { OfferReport } from '../../core/plan/offerReport.js';
 import type { KeptOffers } from '../../core/plan/offerSummary.js';
 import type { AnsweredOffers } from '../../core/plan/offerTable.js';
+import type { RewindRecord } from '../../core/scan/rewindRecord.js';
 import type { ScanCounts } from '../../core/scanCounts.js';
 import type { WatchView } from '../../core/watch/causes.js';
 import type { CycleRecord } from '../../core/watch/cycleRecord.js';
@@ -146,6 +147,8 @@ export interface PlantService {
     kind: Mode | undefined,
     most: number,
   ): CycleRecord[];
+  /** Rewinds whose scans lie in a span or reach into it, newest first, at most `most`. */
+  rewinds(unit: string, from_ms: number, to_ms: number, most: number): RewindRecord[];
   /** The report as text, and the hash of its style for the policy of the browser. */
   bedReport(unit: string, question: ReportQuestion): Promise<{ text: string; style: string }>;
   /** Alarms and alerts that are shown, and those held back: shelved, suppressed, out of service. */

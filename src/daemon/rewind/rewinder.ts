@@ -75,6 +75,7 @@ export class Rewinder {
   private timer: NodeJS.Timeout | null = null;
   private running = false;
   private readonly failures = new Map<string, number>();
+  private readonly lastDone = new Map<string, RewindRecord>();
 
   constructor(private readonly options: RewinderOptions) {}
 
@@ -84,6 +85,8 @@ export class Rewinder {
     const { runners, history, steady } = this.options;
     const now = steady.now();
     for (const { unit } of runners) {
+      const last = history.rewinds.latest(unit.id);
+      if (last) this.lastDone.set(unit.id, last);
       if (history.late.waiting(unit.id)) this.waiting.set(unit.id, { first_ms: now, last_ms: now });
     }
   }
@@ -93,6 +96,16 @@ export class Rewinder {
     if (this.timer) clearTimeout(this.timer);
     this.timer = null;
     this.job = null;
+  }
+
+  /** How it stands with a unit's late readings, in words; empty where there never were any. */
+  words(unit: string): string {
+    if (this.busyWith === unit) return 'makes scans again with late readings';
+    if (this.waiting.has(unit)) return 'late readings wait to be taken in';
+    const last = this.lastDone.get(unit);
+    if (!last) return '';
+    const { done, late_used, scans, revision } = last;
+    return `last rewind ${done}: ${late_used} late readings, ${scans} scans made again, revision ${revision}`;
   }
 
   /** Unit whose scans are made again at present. */
@@ -268,6 +281,7 @@ export class Rewinder {
     const { id } = live.unit;
     live.adopt(second);
     this.failures.delete(id);
+    this.lastDone.set(id, record);
     counters.add('rewinds');
     counters.add('scans_again', record.scans);
     counters.add('estimates_revised', record.revised);

@@ -432,6 +432,7 @@ describe('the good answers, each held against the schema that documents it', () 
       '/api/units/{unit}/profile',
       '/api/units/{unit}/profiles',
       '/api/units/{unit}/report',
+      '/api/units/{unit}/rewinds',
       '/api/units/{unit}/schedule',
       '/api/units/{unit}/sensors',
       '/api/units/{unit}/watch',

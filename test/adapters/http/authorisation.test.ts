@@ -35,6 +35,7 @@ const TABLE = {
   'GET /api/units/{unit}/watch': 'view',
   'GET /api/units/{unit}/watch/history': 'view',
   'GET /api/units/{unit}/cycles': 'view',
+  'GET /api/units/{unit}/rewinds': 'view',
   'GET /api/units/{unit}/report': 'view',
   'GET /api/events': 'view',
   'GET /api/alarms': 'view',

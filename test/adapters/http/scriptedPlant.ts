@@ -33,6 +33,7 @@ import type { OffersAsk } from '../../../src/core/plan/offerAsk.js';
 import { type OfferReport, offerReport } from '../../../src/core/plan/offerReport.js';
 import { type KeptOffers, summaryOf } from '../../../src/core/plan/offerSummary.js';
 import type { AnsweredOffers } from '../../../src/core/plan/offerTable.js';
+import type { RewindRecord } from '../../../src/core/scan/rewindRecord.js';
 import type { ScanCounts } from '../../../src/core/scanCounts.js';
 import type { WatchView } from '../../../src/core/watch/causes.js';
 import type { CycleRecord } from '../../../src/core/watch/cycleRecord.js';
@@ -259,6 +260,16 @@ export class ScriptedPlant implements PlantService {
     return within.slice(-most);
   }
 
+  readonly rewound: RewindRecord[] = [];
+  /** Of the newest estimate. */
+  revision = 0;
+
+  rewinds(unit: string, from_ms: number, to_ms: number, most: number) {
+    const reaches = ({ from, to }: RewindRecord) =>
+      Date.parse(to) >= from_ms && Date.parse(from) <= to_ms;
+    return this.rewound.filter((one) => one.unit === unit && reaches(one)).slice(0, most);
+  }
+
   /** Reports asked for, as they came. */
   readonly reportsAsked: ReportQuestion[] = [];
 
@@ -403,7 +414,7 @@ export class ScriptedPlant implements PlantService {
     return {
       time: this.time(),
       unit: unit.id,
-      revision: 0,
+      revision: this.revision,
       mode: this.moment.mode,
       quality: this.stale ? 'stale' : 'good',
       state_of_charge: this.moment.charged,

@@ -76,6 +76,9 @@ describe('a rewind', () => {
     await inTime.take(scans(0, 61));
     expect(state).toEqual(inTime.runner.snapshot());
     expect(rig.counters.all()).toMatchObject({ rewinds: 2, late_used: 2, estimates_revised: 70 });
+    expect(rig.rewinder.words('u')).toMatch(
+      /^last rewind 2026-\S+: 1 late readings, \d+ scans made again, revision 2$/,
+    );
   });
 
   it('fills a gap of all channels without a second estimate of a scan, and takes nothing back', async () => {
