@@ -1,5 +1,6 @@
-import type { MqttClient } from 'mqtt';
+import { connectAsync, type MqttClient } from 'mqtt';
 import { describe, expect, it } from 'vitest';
+import { hashOf, makeToken } from '../../src/access/token.js';
 import type { SiteConfig, SparkplugSource } from '../../src/config/site.js';
 import { EdgeNode, outside, type Sent } from '../adapters/mqtt/sparkplug/edge.js';
 import { StrictHost } from '../adapters/mqtt/sparkplug/strictHost.js';
@@ -21,9 +22,8 @@ const source = (channel: string): SparkplugSource => ({
   ...{ group: 'Quarry', node: 'PLC1', device: 'Bed' },
 });
 /** The small site with all channels by Sparkplug, as a plant of edge nodes alone has them. */
-function edgeSite(url: string): SiteConfig {
-  const site = smallSite(url, { sources: [], sparkplug: ['a', 'b', 'c', 'e'].map(source) });
-  return site;
+function edgeSite(url: string | null): SiteConfig {
+  return smallSite(url, { sources: [], sparkplug: ['a', 'b', 'c', 'e'].map(source) });
 }
 
 const say = (client: MqttClient, { topic, payload }: Sent) =>
@@ -120,6 +120,38 @@ describe.skipIf(!mosquitto)('edge nodes at a real broker', () => {
   });
 });
 
+describe('its own broker, once it asks for tokens', () => {
+  it('lets a feed be an edge node: born, and dead by its will', async () => {
+    const token = makeToken();
+    const site = edgeSite(null);
+    const daemon = makeDaemon({
+      ...site,
+      mqtt: { ...site.mqtt, sparkplug_node: { group: 'Out', node: 'rockhour' } },
+      http: { ...site.http, tokens: [{ name: 'plc', role: 'feed', hash: hashOf(token) }] },
+    });
+    const { broker: url } = await daemon.start();
+    const edge = new EdgeNode();
+    const { topic, payload } = edge.death();
+    const client = await connectAsync(url, {
+      ...{ username: 'plc', password: token, reconnectPeriod: 0 },
+      will: { topic, payload, qos: 1, retain: false },
+    });
+    later(() => client.endAsync(true));
+    await say(client, edge.birth(Date.now()));
+    await say(client, edge.data('Bed', Date.now(), byAlias(1)));
+    await counted(daemon, 'sparkplug_before_birth', 1);
+    await say(client, edge.deviceBirth('Bed', Date.now(), metrics(1)));
+    await counted(daemon, 'readings', 4);
+    client.stream.destroy();
+    await counted(daemon, 'sparkplug_made_missing', 4);
+    // rockhour's own node came in by its link's log-in.
+    await counted(daemon, 'sparkplug_own_births', 1);
+    expect(daemon.service.counters()).toMatchObject({
+      ...{ sparkplug_births: 2, sparkplug_deaths: 1, broker_publishes_refused: 0 },
+    });
+  });
+});
+
 describe.skipIf(!mosquitto)('rockhour as an edge node at a real broker', () => {
   const own = (url: string, folder?: string): SiteConfig => {
     const site = smallSite(url, folder === undefined ? {} : { folder });
@@ -182,9 +214,8 @@ describe.skipIf(!mosquitto)('rockhour as an edge node at a real broker', () => {
     await expect.poll(() => part().ok, { timeout: 5000 }).toBe(true);
     const { host, client } = await watcher(service.url);
     // Whoever comes with its client id pushes it out: the broker then says its will.
-    const other = await import('mqtt').then(({ connectAsync }) =>
-      connectAsync(service.url, { clientId: 'rockhour-test-sparkplug', reconnectPeriod: 0 }),
-    );
+    const clientId = 'rockhour-test-sparkplug';
+    const other = await connectAsync(service.url, { clientId, reconnectPeriod: 0 });
     later(() => other.endAsync(true));
     await expect.poll(() => host.of('NDEATH').length, { timeout: 5000 }).toBe(1);
     expect(host.of('NDEATH')[0]!.bdSeq).toBe(0);
