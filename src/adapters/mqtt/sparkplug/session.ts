@@ -1,14 +1,9 @@
-import {
-  numberOf,
-  type PayloadFault,
-  type PayloadReading,
-  type Quality,
-  type RoutedChannel,
-} from '../payload.js';
+import { isFuture } from '../../../core/scan/assemble.js';
+import type { PayloadFault, PayloadReading, Quality, RoutedChannel } from '../payload.js';
 import type { SparkplugCount, SparkplugFate } from './counts.js';
+import { bdSeqOf, GREATEST_MS, judged, payloadTime, seqOf } from './fields.js';
 import { aliasKey, type Metric, type Payload, sent, wide } from './messages.js';
 import type { MessageKind, NodeName } from './topics.js';
-import { metricValue, qualityOf } from './values.js';
 
 export interface SparkplugReading extends PayloadReading {
   readonly unit: string;
@@ -57,8 +52,6 @@ interface Part {
 
 /** DBIRTHs follow the NBIRTH at once (6.4.24); a device silent for so long is gone [ms]. */
 const AWAITED_MS = 10_000;
-/** Greatest time that a Date can hold [ms], ECMA-262 section 21.4.1.1. */
-const GREATEST_MS = 8.64e15;
 
 /**
  * What is known of one edge node: whether it and its devices live, which connection it lives by
@@ -279,35 +272,15 @@ export class EdgeSession {
       // A birth comes after the death before it, also by a clock that is behind rockhour's.
       time_ms = Math.max(time_ms, payload_ms ?? time_ms, known.newest_ms);
     }
-    const { value, quality } = this.judged(known, metric, fault);
+    const { value, quality } = judged(routed, known.datatype, metric, fault);
     if (!isHistorical && time_ms >= known.newest_ms) known.isMissing = Number.isNaN(value);
     if (!isHistorical) this.heard(known, time_ms, arrival_ms);
     this.read(known, time_ms, value, quality);
   }
 
-  private judged(
-    known: Known,
-    metric: Metric,
-    fault: (name: PayloadFault) => void,
-  ): { value: number; quality: Quality } {
-    const bad = { value: Number.NaN, quality: 'bad' } as const;
-    if (sent(metric, 'isNull') && metric.isNull === true) {
-      fault('missing_value');
-      return bad;
-    }
-    const quality = qualityOf(metric);
-    if (quality === null) fault('unknown_quality');
-    if (quality === null || quality === 'bad') return bad;
-    const datatype = sent(metric, 'datatype') ? metric.datatype : known.datatype;
-    const value = numberOf(known.channel.routed, metricValue(metric, datatype));
-    if (value !== null) return { value, quality };
-    fault('bad_element');
-    return bad;
-  }
-
   /** A time too far ahead is not believed anywhere, and must not hold up what comes after it. */
   private heard(known: Known, time_ms: number, arrival_ms: number): void {
-    if (time_ms > arrival_ms + this.hooks.future_tolerance_ms) return;
+    if (isFuture({ time_ms, arrival_ms }, this.hooks.future_tolerance_ms)) return;
     known.newest_ms = Math.max(known.newest_ms, time_ms);
   }
 
@@ -329,25 +302,4 @@ export class EdgeSession {
     const { unit, routed } = channel;
     this.hooks.read({ unit, channel: routed.definition, time_ms, value, quality });
   }
-}
-
-/** Time of a payload [ms since 1970]; null where it has none that a date can hold. */
-function payloadTime(payload: Payload): number | null {
-  if (!sent(payload, 'timestamp')) return null;
-  const time_ms = wide(payload.timestamp!);
-  return time_ms <= GREATEST_MS ? time_ms : null;
-}
-
-/** 0 where it was left out, as encoders do with zeros; null where it is no number of the sequence. */
-function seqOf(payload: Payload): number | null {
-  const seq = sent(payload, 'seq') ? wide(payload.seq!) : 0;
-  return seq <= 255 ? seq : null;
-}
-
-/** Number of the connection that a birth or a death belongs to. */
-function bdSeqOf(payload: Payload): number | null {
-  const metric = payload.metrics?.find(({ name }) => name === 'bdSeq');
-  if (metric === undefined) return null;
-  if (sent(metric, 'longValue')) return wide(metric.longValue!);
-  return sent(metric, 'intValue') ? metric.intValue! : null;
 }

@@ -26,6 +26,13 @@ const BED = (at = 300): UMetric[] => [
   double('Bed/other', 9, 15),
 ];
 
+/** With a clock that counts from the year 2000. */
+function harness2000() {
+  const all = harness();
+  all.clock.ms = Date.UTC(2000, 0, 1);
+  return { ...all, edge: new EdgeNode() };
+}
+
 function born() {
   const all = harness();
   stopping.push(() => {
@@ -190,6 +197,15 @@ describe('deaths', () => {
     receive(edge.birth(T0 + 2000, [mode('charge')]));
     receive(edge.deviceBirth('Bed', T0 + 2000, BED(306)));
     expect(news()).toContain('tt@60000=579.15 good');
+  });
+
+  it('end what stands also where this machine has lost its date', () => {
+    const { receive, news, edge, clock } = harness2000();
+    receive(edge.birth(T0, [mode('charge')]));
+    expect(news()).toEqual(['mode@0=1 good']);
+    clock.ms += 1000;
+    receive(edge.death());
+    expect(news()).toContain('mode@0=NaN bad');
   });
 
   it('are concluded where a node is born anew and a device does not follow', () => {
