@@ -7,46 +7,24 @@ import type { Headroom } from '../core/plan/headroom.js';
 import {
   Assembler,
   type AssemblerOptions,
-  type AssemblerSnapshot,
   believedTime,
   type ClosedScan,
   type ReadingFate,
 } from '../core/scan/assemble.js';
 import { voltageFinish } from '../core/scan/convert.js';
 import { PlantClock } from '../core/scan/plantClock.js';
-import type { Scan } from '../core/scan/scan.js';
-import { type ZoneState, ZoneWatch } from '../core/scan/zones.js';
+import { ZoneWatch } from '../core/scan/zones.js';
 import type { ScanCounts } from '../core/scanCounts.js';
 import type { UnitSnapshot, UnitState, UnitStep } from '../core/unit.js';
 import type { UnitCarry } from '../core/unitCarry.js';
-import { shapeOf, type UnitShape } from '../core/unitShape.js';
+import { shapeOf } from '../core/unitShape.js';
 import { alignWatch } from '../core/watch/align.js';
 import { lostToVersion } from '../core/watch/carry.js';
 import type { WatchView } from '../core/watch/causes.js';
 import type { WatchEvent } from '../core/watch/event.js';
 import type { Core } from './core.js';
-
-/** What a checkpoint holds: estimator and open scans, as of one journal entry. */
-interface RunnerImage {
-  readonly unit: UnitSnapshot;
-  readonly assembler: AssemblerSnapshot;
-  /** Of the definition it was saved under; absent in one saved before it was told. */
-  readonly shape?: UnitShape;
-  /** What this state has raised and not returned, as it was raised; absent as above. */
-  readonly standing?: readonly WatchEvent[];
-  /** Absent as above. */
-  readonly zones?: ZoneState;
-}
-
-/** A state saved under another definition, to be taken over where the journal has come to its time. */
-interface Awaited {
-  readonly image: DescribedImage;
-  readonly time_ms: number;
-  /** What is told as raised. */
-  readonly standing: readonly WatchEvent[];
-}
-
-type DescribedImage = RunnerImage & { readonly shape: UnitShape };
+import { measuredIn } from './measured.js';
+import { type Awaited, describedImage, type RunnerImage } from './runnerImage.js';
 
 export interface RunnerStep {
   readonly closed: ClosedScan;
@@ -352,29 +330,4 @@ export class UnitRunner {
 
 function byId(events: readonly WatchEvent[]): Map<string, WatchEvent> {
   return new Map(events.map((event) => [event.id, event]));
-}
-
-function describedImage(checkpoint: StoredCheckpoint): DescribedImage {
-  const { shape, ...image } = checkpoint.load() as RunnerImage;
-  if (shape === undefined) throw new RangeError('it does not tell its definition');
-  return { ...image, shape };
-}
-
-/** Flow (positive while charging) and net power as measured in a scan. */
-export function measuredIn(unit: UnitDefinition, scan: Scan, estimate: Estimate): Measured {
-  let flow = Number.NaN;
-  let power = Number.NaN;
-  unit.channels.forEach(({ role }, i) => {
-    const value = scan.values[i]!;
-    if (Number.isNaN(value)) return;
-    if (role.kind === 'power') power = value / 1e6;
-    if (role.kind !== 'flow') return;
-    if (role.sense === 'signed') flow = value;
-    else if (role.sense === 'unsigned') flow = estimate.mode === 'discharge' ? -value : value;
-    else flow = (Number.isNaN(flow) ? 0 : flow) + (role.sense === 'charge' ? value : -value);
-  });
-  return {
-    flow_kg_s: Number.isFinite(flow) ? flow : null,
-    power_MW_el: Number.isFinite(power) ? power : null,
-  };
 }

@@ -298,7 +298,8 @@ export class Assembler {
       const isJustNow = time_ms >= this.newest_ms - this.options.deadline_ms;
       if (isJustNow && index === this.next! - 1) return 'carried';
     }
-    return this.lastIndex[channel] === index ? 'surplus' : 'late';
+    // Each change counts, whatever its scan has.
+    return this.lastIndex[channel] === index && !isExceptional ? 'surplus' : 'late';
   }
 
   private isComplete(slot: Slot | undefined): boolean {

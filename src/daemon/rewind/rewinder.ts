@@ -1,37 +1,22 @@
-import type { History } from '../../adapters/history/history.js';
-import type { Journal, ReadingEntry } from '../../adapters/history/journal.js';
-import { MOST_DIFFERENCES, type RewindRecord } from '../../core/scan/rewindRecord.js';
-import { isOfTheMachine, type WatchEvent } from '../../core/watch/event.js';
-import { differences, hindsight } from '../../core/watch/hindsight.js';
+import type { ReadingEntry } from '../../adapters/history/journal.js';
+import type { RewindRecord } from '../../core/scan/rewindRecord.js';
+import type { WatchEvent } from '../../core/watch/event.js';
 import { RockhourError, reasonOf } from '../../errors.js';
 import type { Log } from '../../log.js';
-import type { DaemonClock, SteadyClock } from '../clock.js';
-import type { Counters } from '../counters.js';
+import type { SteadyClock } from '../clock.js';
 import type { Entering } from '../entering.js';
-import type { Notices } from '../notices.js';
 import type { RunnerStep, UnitRunner } from '../unitRunner.js';
-import { planRewind } from './plan.js';
-import { Rerun } from './rerun.js';
-import type { RewindRules } from './rules.js';
+import { type Outcome, rewindWork, type WorkParts } from './work.js';
 
-export interface RewinderOptions {
-  readonly journal: Journal;
-  readonly history: History;
+export interface RewinderOptions extends WorkParts {
   readonly runners: readonly UnitRunner[];
-  readonly clock: DaemonClock;
   readonly steady: SteadyClock;
-  readonly counters: Counters;
-  readonly notices: Notices;
   readonly log: Log;
   readonly entering: Entering;
-  readonly rules: RewindRules;
   /** Pause after a failure [ms]; without it 5 s. */
   readonly retry_ms?: number;
-  /** A runner of a unit without a past. */
-  fresh(unit: UnitRunner['unit']): UnitRunner;
   /** Entries that the live units still have to work off. */
   backlog(): number;
-  isBusy(runner: UnitRunner): boolean;
   stepped(runner: UnitRunner, step: RunnerStep): void;
   event(event: WatchEvent): void;
   alarmsMoved(unit: string): void;
@@ -55,13 +40,6 @@ interface Waiting {
 interface Job {
   readonly runner: UnitRunner;
   readonly work: Generator<'more' | 'wait', Outcome | null>;
-}
-
-interface Outcome {
-  readonly rerun: Rerun;
-  readonly second: UnitRunner;
-  readonly record: RewindRecord;
-  readonly events: readonly WatchEvent[];
 }
 
 /**
@@ -159,7 +137,7 @@ export class Rewinder {
     if (!runner?.isSettled || !entering.flushLate(runner.unit.id)) return;
     this.waiting.delete(runner.unit.id);
     // Those that are noted by now: what comes until the work begins is the next one's.
-    this.job = { runner, work: this.rewind(runner, runner.seq) };
+    this.job = { runner, work: rewindWork(runner, runner.seq, this.options) };
     this.goOn(0);
   }
 
@@ -212,70 +190,6 @@ export class Rewinder {
     return { waits: false };
   }
 
-  /** All of a rewind but the last, which is done when its transaction is. */
-  private *rewind(
-    live: UnitRunner,
-    through_seq: number,
-  ): Generator<'more' | 'wait', Outcome | null> {
-    const { journal, history, rules, fresh, isBusy } = this.options;
-    const { unit } = live;
-    const parts = { journal, history, fresh: () => fresh(unit), ...rules };
-    const planning = planRewind(live, through_seq, parts);
-    let planned = planning.next();
-    for (; !planned.done; planned = planning.next()) yield 'more';
-    const { start, used, repeated, too_late, wrong_zone } = planned.value;
-    this.options.counters.add('wrong_zone', wrong_zone);
-    this.tellUseless(unit.id, repeated, too_late);
-    if (start === null) {
-      history.late.take(unit.id, through_seq);
-      return null;
-    }
-    const second = start.runner;
-    const rerun = new Rerun({
-      ...{ journal, history, live, second, from_ms: start.time_ms, through_seq },
-      point_every_ms: rules.point_every_ms,
-      isAtRest: () => !isBusy(live),
-    });
-    yield* rerun.run();
-    return this.conclude(rerun, second, used, through_seq);
-  }
-
-  /** What a rewind comes to, in the same transaction as its last scan. */
-  private conclude(rerun: Rerun, second: UnitRunner, used: number, through_seq: number): Outcome {
-    const { history, clock } = this.options;
-    const { unit } = second;
-    rerun.past.end();
-    rerun.dropStates();
-    const state = second.checkpoint();
-    if (state) history.checkpoints.add(unit, state);
-    history.late.take(unit.id, through_seq);
-    const span = { from_ms: rerun.from_ms, end_ms: rerun.reached_ms + 1 };
-    const own = ({ kind }: WatchEvent) => !isOfTheMachine(kind);
-    const told = history.events.between(unit.id, span.from_ms, span.end_ms, 10_000).filter(own);
-    const found = differences(told, rerun.events, unit.scan_period_s * 1000);
-    const time = new Date(rerun.reached_ms).toISOString();
-    const active = history.alarms.active(unit.id).filter(own);
-    const events = hindsight(active, second.standing, time).filter((one) =>
-      history.events.add(one),
-    );
-    const newest = history.estimates.latest(unit.id);
-    if (newest) second.view.estimate = newest;
-    const record: RewindRecord = {
-      unit: unit.id,
-      done: new Date(clock.now()).toISOString(),
-      from: new Date(span.from_ms).toISOString(),
-      to: time,
-      scans: rerun.scans,
-      late_used: used,
-      revised: rerun.past.revised,
-      revision: history.estimates.newestRevision(unit.id, span),
-      differences: found.slice(0, MOST_DIFFERENCES),
-      differences_left_out: Math.max(0, found.length - MOST_DIFFERENCES),
-    };
-    history.rewinds.add(record);
-    return { rerun, second, record, events };
-  }
-
   private swap(live: UnitRunner, { rerun, second, record, events }: Outcome): void {
     const { counters, log, history, stepped, event, alarmsMoved } = this.options;
     const { id } = live.unit;
@@ -299,23 +213,6 @@ export class Rewinder {
     const moved = history.write(() => history.alarms.scan(id, estimate.mode, time_ms));
     stepped(live, { ...last, step: { ...last.step, estimate } });
     if (moved) alarmsMoved(id);
-  }
-
-  private tellUseless(unit: string, repeated: number, too_late: number): void {
-    const { counters, notices } = this.options;
-    counters.add('late_repeated', repeated);
-    counters.add('too_late', too_late);
-    if (repeated > 0) {
-      const why = 'their scans have values of these channels';
-      notices.info(
-        `late_repeated ${unit}`,
-        `unit ${unit}: ${repeated} late readings left out: ${why}`,
-      );
-    }
-    if (too_late > 0) {
-      const why = 'no state is kept from before them';
-      notices.warn(`too_late ${unit}`, `unit ${unit}: ${too_late} late readings not used: ${why}`);
-    }
   }
 
   /** What was written is right as far as it goes; begun again, it comes to the same. */

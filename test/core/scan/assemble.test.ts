@@ -129,6 +129,8 @@ describe('a reading', () => {
     expect(drain(assembler)).toHaveLength(1);
     expect(add(assembler, E, 62, 8)).toBe('late');
     expect(add(assembler, E, 61, 9)).toBe('late');
+    // Nor is it surplus where its scan has a later one: each change counts once a rewind takes it in.
+    expect(add(assembler, E, 20, 7)).toBe('late');
     for (const channel of [A, B, C]) add(assembler, channel, 91, channel);
     const [{ scan }] = drain(assembler) as [ClosedScan];
     expect([[...scan.values], [...scan.held]]).toEqual([
