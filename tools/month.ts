@@ -15,7 +15,7 @@ import { parseArgs } from 'node:util';
 import { History } from '../src/adapters/history/history.js';
 import { loadSite } from '../src/config/load.js';
 import { advance, startUnit } from '../src/core/unit.js';
-import { measuredIn } from '../src/daemon/unitRunner.js';
+import { measuredIn } from '../src/daemon/measured.js';
 import { DEMO_GEOMETRY } from '../test/plant/demoGeometry.js';
 import type { PlantChange, SensorFault } from '../test/plant/faults.js';
 import { scheduleFor } from '../test/plant/schedules.js';
