@@ -21,7 +21,7 @@ export const rewindRoutes: Routes = (app, { service }) => {
         tags: ['history'],
         params: unitParams,
         querystring: rewindsQuery,
-        response: { 200: rewindsSchema, ...faults },
+        response: { 200: rewindsSchema.describe('Newest first'), ...faults },
       },
     },
     async (request) => {
