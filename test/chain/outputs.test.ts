@@ -365,6 +365,7 @@ describe.skipIf(!mosquitto)('a running daemon', () => {
     expect(health.body.parts.map(({ name }: { name: string }) => name)).toEqual([
       'mqtt',
       'store',
+      'clock',
       'unit vellmoor',
     ]);
     expect(health.body.ok).toBe(true);
