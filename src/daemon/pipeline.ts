@@ -1,20 +1,21 @@
 import type { History } from '../adapters/history/history.js';
 import type { Journal, JournalEntry, ReadingEntry } from '../adapters/history/journal.js';
-import { isMachineDateless } from '../core/scan/assemble.js';
+import { isMachineDateless, type ReadingFate } from '../core/scan/assemble.js';
 import { reasonOf } from '../errors.js';
 import type { Log } from '../log.js';
 import type { DaemonClock, SteadyClock } from './clock.js';
 import { zoneWords } from './clockWords.js';
 import type { Counters } from './counters.js';
 import type { Entering } from './entering.js';
+import { Feed, type UnitLine } from './feed.js';
 import type { Notices } from './notices.js';
 import { restoreRunner } from './restore.js';
 import type { UnitRunner } from './unitRunner.js';
 
 /** Work in one go, after which messages and questions have their turn [ms]. */
 const SLICE_MS = 25;
-/** Journal entries read at a time. */
-const PAGE = 512;
+/** Entries of one unit taken in before others have their turn, where they close no scan. */
+const TURN_ENTRIES = 64;
 /** After a failure to read the journal [ms]. */
 const RETRY_MS = 1000;
 
@@ -36,15 +37,14 @@ export interface PipelineOptions {
 }
 
 /**
- * From journal to history: reads what was committed, in order, runs it through the units and
- * enters what comes out. It works in slices; how far it is behind the journal is its backlog.
+ * From journal to history: reads what was committed, runs it through the units, each its own in their
+ * order and one scan at a time in turn, and enters what comes out. It works in slices; how far it is
+ * behind the journal is its backlog.
  */
 export class Pipeline {
-  private seq = 0;
-  private page: readonly JournalEntry[] = [];
-  private onPage = 0;
-  /** Units that may have closed scans to be worked off before the next entry. */
-  private busy: UnitRunner[] = [];
+  private feed: Feed | null = null;
+  /** Whose turn it is. */
+  private turn = 0;
   private scheduled: NodeJS.Immediate | null = null;
   private retry: NodeJS.Timeout | null = null;
   private running = false;
@@ -61,11 +61,14 @@ export class Pipeline {
     const { runners, journal } = this.options;
     this.liveFrom = journal.lastSeq + 1;
     for (const runner of runners) restoreRunner(runner, this.options);
-    this.seq = Math.min(journal.lastSeq, ...runners.map((runner) => runner.seq));
-    this.page = [];
-    this.onPage = 0;
-    // A stop may have come amid the scans of a long gap.
-    this.busy = [...runners];
+    // A stop may have come amid the scans of a long gap: every unit may step before it takes.
+    this.feed = new Feed(
+      runners,
+      Math.min(journal.lastSeq, ...runners.map((runner) => runner.seq)),
+      (seq, most) => this.read(seq, most),
+      (entry) => this.tell(entry, 'unconfigured'),
+    );
+    this.turn = 0;
     this.kick();
   }
 
@@ -87,32 +90,38 @@ export class Pipeline {
     this.scheduled = setImmediate(() => this.slice());
   }
 
-  /** Closes what is past its deadline, unless there are readings still to be considered. */
+  /** Closes what is past its deadline, unless there are readings of the unit still to be considered. */
   closeDue(): void {
-    if (!this.running || this.backlog > 0) return;
-    const { journal, runners, steady, clock } = this.options;
+    const { feed } = this;
+    const { journal, steady, clock } = this.options;
+    if (!this.running || !feed || feed.seq < journal.lastSeq) return;
     const steady_ms = steady.now();
-    for (const runner of runners) {
-      const index = runner.due(steady_ms);
-      if (index === null) continue;
-      try {
-        journal.appendClose(runner.unit.id, index, Math.floor(clock.now()));
-      } catch (thrown) {
-        this.options.entering.storeFailed('journal_failures', thrown);
-        return;
-      }
+    const arrival_ms = Math.floor(clock.now());
+    const due = feed.lines.flatMap((line) => {
+      if (line.mayStep || line.length > 0 || line.passed > 0) return [];
+      const index = line.runner.due(steady_ms);
+      return index === null ? [] : [{ unit: line.runner.unit.id, scan_index: index }];
+    });
+    try {
+      journal.appendCloses(due, arrival_ms);
+    } catch (thrown) {
+      this.options.entering.storeFailed('journal_failures', thrown);
+      return;
     }
     this.kick();
   }
 
   /** Entries that are in the journal but not in the estimates. */
   get backlog(): number {
-    return this.options.journal.lastSeq - this.seq + this.busy.length;
+    const { feed } = this;
+    if (!feed) return 0;
+    const busy = feed.lines.filter(({ mayStep }) => mayStep).length;
+    return this.options.journal.lastSeq - feed.seq + feed.waiting + busy;
   }
 
   /** Whether a unit may have closed scans that are not worked off. */
   isBusy(runner: UnitRunner): boolean {
-    return this.busy.includes(runner);
+    return this.feed?.lines.find((line) => line.runner === runner)?.mayStep ?? false;
   }
 
   /** Why a unit's last scan could not be taken in, by unit. */
@@ -133,6 +142,8 @@ export class Pipeline {
 
   private slice(): void {
     this.scheduled = null;
+    const { feed } = this;
+    if (!feed) return;
     const end = performance.now() + SLICE_MS;
     const { entering } = this.options;
     while (this.running && performance.now() < end) {
@@ -140,13 +151,38 @@ export class Pipeline {
         this.rest();
         return;
       }
-      if (this.busy.length > 0) this.stepBusy();
-      else if (!this.takeNext()) {
+      const hasRead = feed.fill(this.options.journal.lastSeq);
+      if (!this.round(feed, end) && !hasRead) {
         this.rest();
         return;
       }
     }
     this.kick();
+  }
+
+  /** A turn for each unit, as far as time allows; false where none had anything to do. */
+  private round(feed: Feed, end: number): boolean {
+    const { lines } = feed;
+    let worked = false;
+    for (let n = 0; n < lines.length && this.running; n++) {
+      const line = lines[this.turn % lines.length]!;
+      this.turn = (this.turn + 1) % lines.length;
+      if (!line.mayStep && line.length === 0) continue;
+      worked = true;
+      this.turnOf(feed, line);
+      if (performance.now() >= end) return true;
+    }
+    return worked;
+  }
+
+  /** One scan of a unit, or so many entries up to the next that closes one. */
+  private turnOf(feed: Feed, line: UnitLine): void {
+    for (let n = 0; n < TURN_ENTRIES; n++) {
+      if (line.mayStep && this.step(line)) return;
+      const entry = feed.take(line);
+      if (!entry) return;
+      this.takeIn(line, entry);
+    }
   }
 
   /** Nothing to do now, or, with a backlog, a journal that cannot be read. */
@@ -160,54 +196,48 @@ export class Pipeline {
     this.kick();
   }
 
-  /** Takes the next entry in; false where there is none. */
-  private takeNext(): boolean {
-    if (this.onPage >= this.page.length) {
-      this.page = this.readPage();
-      this.onPage = 0;
+  private takeIn(line: UnitLine, entry: JournalEntry): void {
+    const { runner } = line;
+    const fate = runner.take(entry, this.options.steady.now());
+    line.mayStep = true;
+    if (fate === null) return;
+    const isLive = this.tell(entry, fate);
+    if (fate === 'late' && entry.kind === 'reading') this.options.late(runner, entry, isLive);
+  }
+
+  /** Counts what became of an entry, where it is not of a replay; whether it is not. */
+  private tell(entry: JournalEntry, fate: ReadingFate | 'unconfigured'): boolean {
+    const { counters, notices } = this.options;
+    if (entry.seq < this.liveFrom) return false;
+    counters.add(fate);
+    if (TOLD_FATES.includes(fate)) notices.warn(fate, describe(entry, fate));
+    if (entry.kind === 'reading' && isMachineDateless(entry)) {
+      counters.add('machine_dateless');
+      const stands = new Date(entry.arrival_ms).toISOString();
+      notices.warn('machine_dateless', `this machine's clock stands at ${stands}: set it`);
     }
-    const entry = this.page[this.onPage++];
-    if (!entry) return false;
-    const { runners, counters, notices, steady } = this.options;
-    this.seq = entry.seq;
-    const runner = runners.find(({ unit }) => unit.id === entry.unit);
-    const isLive = entry.seq >= this.liveFrom;
-    const isNobodys = entry.unit === '';
-    const fate = runner ? runner.take(entry, steady.now()) : isNobodys ? null : 'unconfigured';
-    if (fate !== null && isLive) {
-      counters.add(fate);
-      if (TOLD_FATES.includes(fate)) notices.warn(fate, describe(entry, fate));
-      if (entry.kind === 'reading' && isMachineDateless(entry)) {
-        counters.add('machine_dateless');
-        const stands = new Date(entry.arrival_ms).toISOString();
-        notices.warn('machine_dateless', `this machine's clock stands at ${stands}: set it`);
-      }
-    }
-    if (runner && fate === 'late' && entry.kind === 'reading')
-      this.options.late(runner, entry, isLive);
-    if (runner) this.busy.push(runner);
     return true;
   }
 
-  private readPage(): JournalEntry[] {
+  private read(seq: number, most: number): JournalEntry[] {
     try {
-      return this.options.journal.read(this.seq, PAGE);
+      return this.options.journal.read(seq, most);
     } catch (thrown) {
       this.options.entering.storeFailed('journal_failures', thrown);
       return [];
     }
   }
 
-  /** One scan of a unit that has closed ones, or the end of them. */
-  private stepBusy(): void {
-    const runner = this.busy.at(-1)!;
+  /** One scan of a unit that may have closed ones; false where it has none. */
+  private step(line: UnitLine): boolean {
+    const { runner } = line;
     const { counters, entering } = this.options;
     const skipped = runner.skippedScans;
     try {
       const step = runner.step();
       if (!step) {
-        this.busy.pop();
-        return;
+        line.mayStep = false;
+        return false;
       }
       counters.add('scans');
       counters.add(step.closed.cause === 'complete' ? 'scans_complete' : 'scans_deadline');
@@ -219,6 +249,7 @@ export class Pipeline {
     } catch (thrown) {
       this.failed(runner, thrown);
     }
+    return true;
   }
 
   private failed(runner: UnitRunner, thrown: unknown): void {

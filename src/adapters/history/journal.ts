@@ -192,7 +192,16 @@ export class Journal {
 
   /** Notes that all scans of a unit up to `scan_index` are closed from here on. */
   appendClose(unit: string, scan_index: number, arrival_ms: number): number {
-    return this.commit(1, (seq) => {
+    return this.appendCloses([{ unit, scan_index }], arrival_ms);
+  }
+
+  /** The same of several units, in one synced transaction. */
+  appendCloses(
+    marks: readonly { readonly unit: string; readonly scan_index: number }[],
+    arrival_ms: number,
+  ): number {
+    return this.commit(marks.length, (seq, i) => {
+      const { unit, scan_index } = marks[i]!;
       const source = this.sourceNumber(unit, UNIT_ITSELF);
       this.insert.run(seq, source, scan_index, arrival_ms, null, CLOSE_MARK);
     });
