@@ -24,12 +24,13 @@ import {
   brokerHealth,
   clockHealth,
   edgeNodeHealth,
+  leftOutHealth,
   storeHealth,
   unitHealth,
 } from './daemon/health.js';
 import { Hourly } from './daemon/hourly.js';
 import { Housekeeping } from './daemon/housekeeping.js';
-import { futureTolerance, runnerMaker } from './daemon/makeRunners.js';
+import { futureTolerance, runnerMaker, unitPhases } from './daemon/makeRunners.js';
 import { MqttPart, type MqttPartOptions } from './daemon/mqttPart.js';
 import { Notices } from './daemon/notices.js';
 import { NotifyPart } from './daemon/notifyPart.js';
@@ -167,7 +168,8 @@ class RockhourDaemon implements Daemon {
       alarmsMoved: (unit: string) => this.alarms.moved(unit),
     };
     const checkpoint_every_ms = site.store.checkpoint_every_s * 1000;
-    const entering = new Entering({ ...common, ...rules, ...tells, checkpoint_every_ms });
+    const phase = unitPhases(site);
+    const entering = new Entering({ ...common, ...rules, ...tells, checkpoint_every_ms, phase });
     this.pipeline = new Pipeline({
       ...{ ...units, entering },
       late: (runner, reading, isNew) => this.rewinder.note(runner, reading, isNew),
@@ -262,6 +264,7 @@ class RockhourDaemon implements Daemon {
     this.service = new DaemonService({
       ...{ siteName: site.name, version, runners: this.runners, history, counters, clock },
       store: site.store,
+      leftOut: site.left_out ?? [],
       questions: this.questions,
       kept: (unit, table) => this.speaker.sayOffers(unit, table),
       scanTimes: this.scanTimes,
@@ -447,6 +450,7 @@ class RockhourDaemon implements Daemon {
           this.rewinder.words(runner.unit.id),
         ),
       ),
+      ...(this.site.left_out ?? []).map(leftOutHealth),
     ];
   }
 }

@@ -1,5 +1,5 @@
 import { parentPort, workerData } from 'node:worker_threads';
-import { type SiteSource, siteOf } from './config/load.js';
+import { runnableSiteOf, type SiteSource } from './config/load.js';
 import type { UnitDefinition } from './core/definitions.js';
 import { answerPlan, type PlanAnswer, type PlanQuestion } from './core/plan/ask.js';
 import { hoursAt, restoreUnit, type UnitSnapshot } from './core/unit.js';
@@ -64,7 +64,8 @@ function answerTo(unit: UnitDefinition, question: WorkerQuestion): Answer {
  * whatever stands in the file by now.
  */
 function serve(port: NonNullable<typeof parentPort>): void {
-  const units = new Map(siteOf(workerData as SiteSource).units.map((unit) => [unit.id, unit]));
+  const { units: configured } = runnableSiteOf(workerData as SiteSource);
+  const units = new Map(configured.map((unit) => [unit.id, unit]));
   port.on('message', ({ id, question }: NumberedQuestion) => {
     let reply: WorkerReply;
     try {

@@ -1,5 +1,6 @@
 import type { Command } from 'commander';
-import { readSource, siteOf } from '../config/load.js';
+import { faultsAsText } from '../config/faults.js';
+import { readSource, runnableSiteOf } from '../config/load.js';
 import type { SiteConfig } from '../config/site.js';
 import type { DaemonPlaces } from '../daemon.js';
 import { RockhourError } from '../errors.js';
@@ -37,8 +38,14 @@ export function readyLine(site: SiteConfig, places: DaemonPlaces): string {
 
 async function run(options: RunOptions): Promise<void> {
   const source = readSource(options.config);
-  const site = siteOf(source);
+  const site = runnableSiteOf(source);
   const log = createLog({ level: logLevel(options.logLevel) });
+  for (const { id, faults } of site.left_out ?? []) {
+    log.error(
+      { unit: id, faults },
+      `unit ${id} is left out, its readings are not taken in: ${faultsAsText(source.path, faults)}`,
+    );
+  }
   // Servers and clients take half a second to load, which a refusal above need not wait for.
   const { createDaemon } = await import('../daemon.js');
   let lose: (thrown: unknown) => void = () => undefined;
@@ -76,6 +83,8 @@ export function register(program: Command): void {
         '',
         'When all is up, one line goes to standard output:',
         '  ready page=URL broker=URL database="FOLDER" units=ID,ID',
+        'A unit whose part of the configuration has faults is left out, and told in the log and on the',
+        'page; the others run. Faults elsewhere refuse the file, as check does with all of them.',
         'The log goes to standard error. SIGTERM or SIGINT stop it cleanly within 5 s. SIGHUP reads',
         'the configuration again and goes on by it with the state kept; one with faults changes nothing.',
       ].join('\n'),

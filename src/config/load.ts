@@ -22,8 +22,21 @@ export function readSource(path: string): SiteSource {
 }
 
 /** @throws ConfigFault with every fault of the text at once */
-export function siteOf({ path, text }: SiteSource): SiteConfig {
-  const parsed = parseSite(text, dirname(resolve(path)));
+export function siteOf(source: SiteSource): SiteConfig {
+  return parsed(source, false);
+}
+
+/**
+ * The same for running: units with faults are left out and told in `left_out`.
+ *
+ * @throws ConfigFault where a fault lies outside the units, or no unit is sound
+ */
+export function runnableSiteOf(source: SiteSource): SiteConfig {
+  return parsed(source, true);
+}
+
+function parsed({ path, text }: SiteSource, leavesOut: boolean): SiteConfig {
+  const parsed = parseSite(text, dirname(resolve(path)), process.env, leavesOut);
   if (parsed.faults !== undefined) {
     throw new ConfigFault('CONFIG_INVALID', path, parsed.faults, parsed.more_may_follow);
   }

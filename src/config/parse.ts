@@ -2,12 +2,13 @@ import { LineCounter, parseDocument, type YAMLError } from 'yaml';
 import { crossFaults } from './crossChecks/index.js';
 import { type Fault, pathText } from './faults.js';
 import { deepFreeze } from './freeze.js';
+import { leaveOut } from './leaveOut.js';
 import { lineOf } from './locate.js';
 import { repair, restsOn } from './repair.js';
 import { resolveSite } from './resolve.js';
-import { type SiteBlock, siteSchema } from './schema/site.js';
-import { readSecrets, type SecretFault } from './secrets.js';
-import type { SiteConfig } from './site.js';
+import { type SiteBlock, siteSchema, unitSchema } from './schema/site.js';
+import { readSecrets, type SecretFault, type Secrets } from './secrets.js';
+import type { LeftOutUnit, SiteConfig } from './site.js';
 import { type RawFault, structureFaults } from './structure.js';
 
 export type Parsed =
@@ -19,15 +20,26 @@ export type Parsed =
       readonly site?: never;
     };
 
+type Environment = Readonly<Record<string, string | undefined>>;
+
+/** What is found in the data of a site file. */
+type Judged =
+  | { readonly block: SiteBlock; readonly secrets: Secrets; readonly faults: readonly [] }
+  | { readonly faults: readonly RawFault[]; readonly more_may_follow: boolean };
+
 /**
  * A site file's text becomes a frozen SiteConfig, or every fault of it at once, in the order of
  * the file. Relative paths in it are taken from `baseFolder`; passwords come from files or from
  * `environment`. It throws for no text whatever.
+ *
+ * @param leavesOut where all faults lie within some of its units, a site of the others, which tells
+ *   those that were left out
  */
 export function parseSite(
   text: string,
   baseFolder: string,
-  environment: Readonly<Record<string, string | undefined>> = process.env,
+  environment: Environment = process.env,
+  leavesOut = false,
 ): Parsed {
   const lines = new LineCounter();
   const document = parseDocument(text, { lineCounter: lines, prettyErrors: false });
@@ -55,23 +67,58 @@ export function parseSite(
       }))
       .sort((a, b) => (a.line ?? 0) - (b.line ?? 0));
 
+  const judged = judge(data, baseFolder, environment);
+  if ('block' in judged) {
+    return { site: deepFreeze(resolveSite(judged.block, baseFolder, judged.secrets)) };
+  }
+  const { faults, more_may_follow } = judged;
+  const rest = leavesOut
+    ? leaveOut(data, (one) => judge(one, baseFolder, environment).faults)
+    : null;
+  const sound = rest && judge(rest.data, baseFolder, environment);
+  if (!rest || !sound || !('block' in sound)) return { faults: located(faults), more_may_follow };
+  const site = resolveSite(sound.block, baseFolder, sound.secrets);
+  const taken = new Set(site.units.map(({ id }) => id));
+  const left_out = rest.faulty.map((unit): LeftOutUnit => {
+    const named = namedOf(data, unit.place, taken);
+    taken.add(named.id);
+    return { ...named, faults: located(unit.faults) };
+  });
+  return { site: deepFreeze({ ...site, left_out }) };
+}
+
+function judge(data: unknown, baseFolder: string, environment: Environment): Judged {
   const structural = structureFaults(siteSchema, data);
   const sound = siteSchema.safeParse(data);
   if (!sound.success) {
     const mended = repair(siteSchema, data, structural);
-    if (mended === null) return { faults: located(structural), more_may_follow: true };
+    if (mended === null) return { faults: structural, more_may_follow: true };
     const block = siteSchema.parse(mended.data);
     const concluded = crossFaults(block).filter((f) => !restsOn(f.about, mended.invented));
     const unread = readSecrets(block, baseFolder, environment)
       .faults.filter((f) => !restsOn([f.path], mended.invented))
       .map(asRaw);
-    return { faults: located([...structural, ...concluded, ...unread]), more_may_follow: false };
+    return { faults: [...structural, ...concluded, ...unread], more_may_follow: false };
   }
   const block: SiteBlock = sound.data;
   const { secrets, faults: secretFaults } = readSecrets(block, baseFolder, environment);
-  const raw = [...crossFaults(block), ...secretFaults.map(asRaw)];
-  if (raw.length > 0) return { faults: located(raw), more_may_follow: false };
-  return { site: deepFreeze(resolveSite(block, baseFolder, secrets)) };
+  const faults = [...crossFaults(block), ...secretFaults.map(asRaw)];
+  return faults.length > 0
+    ? { faults, more_may_follow: false }
+    : { block, secrets, faults: [] as const };
+}
+
+/** Id and name of a unit of which anything may be wrong; its place where its id is none, or another's. */
+function namedOf(
+  data: unknown,
+  place: number,
+  taken: ReadonlySet<string>,
+): { readonly id: string; readonly name: string } {
+  const block = (data as { units: unknown[] }).units[place] as { id?: unknown; name?: unknown };
+  const own = unitSchema.shape.id.safeParse(block?.id);
+  const id = own.success && !taken.has(own.data) ? own.data : `units[${place}]`;
+  const name = unitSchema.shape.name.safeParse(block?.name);
+  return { id, name: (name.success ? name.data : undefined) ?? id };
 }
 
 function asRaw(fault: SecretFault): RawFault {

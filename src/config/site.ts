@@ -1,6 +1,7 @@
 import type { AccessToken } from '../access/token.js';
 import type { UnitDefinition } from '../core/definitions.js';
 import type { EventKind } from '../core/watch/event.js';
+import type { Fault } from './faults.js';
 
 /** Where the readings of a channel come from. */
 export interface ChannelSource {
@@ -143,6 +144,14 @@ export interface NotifyConfig {
   readonly webhooks: readonly WebhookConfig[];
 }
 
+/** A unit that is not run, because its part of the file has faults. */
+export interface LeftOutUnit {
+  /** As in the file; its place there (`units[2]`) where that is no id, or another unit's. */
+  readonly id: string;
+  readonly name: string;
+  readonly faults: readonly Fault[];
+}
+
 /** A whole site: what the YAML file becomes once it is found sound. Frozen. */
 export interface SiteConfig {
   readonly name: string;
@@ -150,6 +159,8 @@ export interface SiteConfig {
   readonly sources: readonly ChannelSource[];
   /** Channels that come by Sparkplug; absent: none. */
   readonly sparkplug?: readonly SparkplugSource[];
+  /** Units of the file that have faults and are not run; absent: none. */
+  readonly left_out?: readonly LeftOutUnit[];
   /** How long after its nominal end a scan waits for missing readings [s]. */
   readonly scan_deadline_s: number;
   /**

@@ -19,6 +19,8 @@ export interface EnteringOptions {
   readonly counters: Counters;
   readonly notices: Notices;
   readonly checkpoint_every_ms: number;
+  /** Share of these intervals by which a unit comes later than the first, so that not all come at once. */
+  phase(unit: string): number;
   /** Spacing of the states that late readings rewind to, and how far back they are kept [ms]; 0 = none. */
   readonly point_every_ms: number;
   readonly reach_ms: number;
@@ -184,7 +186,10 @@ export class Entering {
   private checkpointIfDue(runner: UnitRunner, time_ms: number): void {
     const due = this.nextCheckpoint.get(runner.unit.id);
     if (due !== undefined && time_ms < due && !runner.unsaved) return;
-    this.nextCheckpoint.set(runner.unit.id, time_ms + this.options.checkpoint_every_ms);
+    const { checkpoint_every_ms, phase } = this.options;
+    // The first interval of each unit is another, so that states are saved one after the other.
+    const share = due === undefined ? 1 - phase(runner.unit.id) : 1;
+    this.nextCheckpoint.set(runner.unit.id, time_ms + share * checkpoint_every_ms);
     // The first of this process would only repeat the one that it was restored from.
     if (due !== undefined || runner.unsaved) this.save(runner);
   }
@@ -194,13 +199,19 @@ export class Entering {
     if (list) this.options.history.late.add(unit, list);
   }
 
-  /** Keeps the state where it is the first of its stretch, for late readings to go back to. */
+  /**
+   * Keeps the state where its stretch has none, for late readings to go back to: the first of it, of
+   * further units the first behind their phase in it.
+   */
   private keepPoint(runner: UnitRunner, time_ms: number): void {
     const { unit } = runner;
     const { history, point_every_ms, reach_ms } = this.options;
     if (reach_ms === 0 || time_ms < (this.nextPoint.get(unit.id) ?? Number.NEGATIVE_INFINITY))
       return;
-    this.nextPoint.set(unit.id, (Math.floor(time_ms / point_every_ms) + 1) * point_every_ms);
+    const begin_ms = Math.floor(time_ms / point_every_ms) * point_every_ms;
+    const from_ms = begin_ms + this.options.phase(unit.id) * point_every_ms;
+    this.nextPoint.set(unit.id, time_ms < from_ms ? from_ms : begin_ms + point_every_ms);
+    if (time_ms < from_ms) return;
     if (history.rewindPoints.hasOneOf(unit.id, time_ms, point_every_ms)) return;
     const checkpoint = runner.checkpoint();
     if (checkpoint) history.rewindPoints.add(unit, checkpoint, point_every_ms);

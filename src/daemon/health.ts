@@ -2,6 +2,7 @@ import type { InfluxForwarder } from '../adapters/history/influxForwarder.js';
 import type { Outbox } from '../adapters/history/outbox.js';
 import type { HealthPart } from '../adapters/http/service.js';
 import type { EdgeNodeState } from '../adapters/mqtt/sparkplug/host.js';
+import type { LeftOutUnit } from '../config/site.js';
 import { LEAST_DATE_MS } from '../core/scan/assemble.js';
 import type { DaemonClock } from './clock.js';
 import { type ClockStep, stepWords } from './clockSteps.js';
@@ -86,6 +87,16 @@ export function unitHealth(
   const age_s = Math.max(0, (clock.now() - runner.newest_ms) / 1000);
   const ok = age_s <= runner.unit.watch.data_age_s.limit;
   return { name, ok, detail: `newest reading ${Math.round(age_s)} s old${told}` };
+}
+
+/** A unit that is not run until its configuration is mended. */
+export function leftOutHealth({ id, faults }: LeftOutUnit): HealthPart {
+  const [first] = faults;
+  const more = faults.length > 1 ? `, and ${faults.length - 1} more` : '';
+  const detail =
+    `left out, its readings are not taken in; faults in the configuration: ` +
+    `${first!.path}: found ${first!.found}, expected ${first!.expected}${more}`;
+  return { name: `unit ${id}`, ok: false, detail };
 }
 
 /** Names told in full; the log has them all. */

@@ -16,7 +16,19 @@ export function runnerMaker(site: SiteConfig, core: Core): MakeRunner {
     future_tolerance_ms: futureTolerance(site),
     longest_gap_scans: LONGEST_GAP_SCANS,
   };
-  return (unit) => new UnitRunner(unit, core, assembly);
+  const phase = unitPhases(site);
+  return (unit) => {
+    return new UnitRunner(unit, core, assembly, phase(unit.id) * unit.hours_every_s * 1000);
+  };
+}
+
+/**
+ * Share of an interval by which each unit does what all do at intervals (hours, saved states): the
+ * first at even times, the others spread behind it, so that many never do it in the same scan.
+ */
+export function unitPhases({ units }: Pick<SiteConfig, 'units'>): (unit: string) => number {
+  const places = new Map(units.map(({ id }, i) => [id, i / units.length]));
+  return (unit) => places.get(unit) ?? 0;
 }
 
 /** A reading stamped further ahead of its arrival than this is not believed [ms]. */

@@ -11,7 +11,7 @@ import type {
   StoredMoment,
   UnitNow,
 } from '../adapters/http/service.js';
-import type { StoreConfig } from '../config/site.js';
+import type { LeftOutUnit, StoreConfig } from '../config/site.js';
 import type { AlarmEntry, RecordedTransition } from '../core/alarm/entry.js';
 import type { AlarmReport } from '../core/alarm/report.js';
 import type { Mode } from '../core/definitions.js';
@@ -46,6 +46,7 @@ export interface PlantServiceParts {
   readonly runners: ReadonlyMap<string, UnitRunner>;
   readonly history: History;
   readonly store: StoreConfig;
+  readonly leftOut?: readonly LeftOutUnit[];
   readonly questions: Questions;
   readonly counters: Counters;
   readonly alarms: AlarmPart;
@@ -84,6 +85,10 @@ export class DaemonService implements PlantService {
 
   unitIds(): string[] {
     return [...this.parts.runners.keys()];
+  }
+
+  leftOut(): readonly LeftOutUnit[] {
+    return this.parts.leftOut ?? [];
   }
 
   now(id: string): UnitNow | undefined {

@@ -83,6 +83,8 @@ export class UnitRunner {
     readonly unit: UnitDefinition,
     private readonly core: Core,
     private readonly options: AssemblerOptions,
+    /** Its clock strikes for hours so much later than the even times [ms]; 0: at these. */
+    private readonly hours_phase_ms = 0,
   ) {
     this.channelIndex = new Map(unit.channels.map((channel, i) => [channel.id, i]));
     this.finish = voltageFinish(unit);
@@ -271,7 +273,7 @@ export class UnitRunner {
     if (!closed) return null;
     const { scan } = closed;
     if (this.awaited !== null && scan.time_ms > this.awaited.time_ms) this.takeOver(this.awaited);
-    const isDue = withHours && this.core.hoursDue(this.unit, this.state.time_ms, scan.time_ms);
+    const isDue = withHours && this.isHoursDue(scan.time_ms);
     const ask = { hours_at_W: isDue ? this.unit.hours_at_W : [], profile: true };
     const step = this.core.advance(this.unit, this.state, scan, ask);
     const { estimate, profile } = step;
@@ -288,6 +290,14 @@ export class UnitRunner {
     if (step.watch) this.view.watch = step.watch;
     if (estimate.dispatch) this.view.dispatch = { time: estimate.time, answers: estimate.dispatch };
     return { closed, step, measured };
+  }
+
+  /** One that comes later than the first has its first hours from the worker, not amid the scans. */
+  private isHoursDue(time_ms: number): boolean {
+    const { unit, state, hours_phase_ms } = this;
+    if (state.time_ms === null && hours_phase_ms > 0) return false;
+    const last_ms = state.time_ms === null ? null : state.time_ms - hours_phase_ms;
+    return this.core.hoursDue(unit, last_ms, time_ms - hours_phase_ms);
   }
 
   private takeOver({ image, standing }: Awaited): void {

@@ -74,7 +74,7 @@ test('reads past a flood for a unit that has nothing to do', () => {
 test('reads the journal of a single unit once', () => {
   const journal = Array.from({ length: 20_480 }, (_, i) => entry(i + 1, 'u'));
   const { feed, reads } = feedOf(journal, { u: 0 });
-  for (let n = 0; feed.fill(journal.length) || feed.waiting > 0; n++) {
+  while (feed.fill(journal.length) || feed.waiting > 0) {
     feed.take(feed.lines[0]!);
   }
   expect(reads()).toBe(40);

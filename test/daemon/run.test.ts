@@ -1,7 +1,8 @@
-import { mkdirSync, writeFileSync } from 'node:fs';
+import { mkdirSync, readFileSync, writeFileSync } from 'node:fs';
 import { createServer } from 'node:net';
 import { join } from 'node:path';
 import { describe, expect, it } from 'vitest';
+import { parse, stringify } from 'yaml';
 import { EXIT_CODES } from '../../src/errors.js';
 import { rockhour } from '../support/cli.js';
 import { freePort } from '../support/ports.js';
@@ -36,6 +37,30 @@ describe('rockhour run', () => {
     expect(code).toBe(EXIT_CODES.usage.code);
     expect(stdout).toBe('');
     expectOneMessage(stderr, 'http.port', 'mqtt.protocol', 'qoss');
+  });
+
+  it('leaves a unit with faults out, says so everywhere, and runs the others; check refuses', async () => {
+    const { path } = siteFile(OWN_BROKER, 20);
+    const site = parse(readFileSync(path, 'utf8')) as { units: Record<string, unknown>[] };
+    const [unit] = site.units;
+    site.units.push({ ...unit, id: 'faulty', name: 'Faulty one', rated_hours_h: -6 });
+    writeFileSync(path, stringify(site));
+    expect((await rockhour(['check', '--config', path])).code).toBe(EXIT_CODES.usage.code);
+    const rockhours = new RockhourProcess(['run', '--config', path]);
+    const ready = await rockhours.ready();
+    expect(ready).toMatch(/ units=vellmoor$/);
+    expect(rockhours.stderr).toMatch(/unit faulty is left out.*units\[1\]\.rated_hours_h/s);
+    const page = / page=(\S+)/.exec(ready)![1]!;
+    const health = await (await fetch(`${page}api/health`)).json();
+    expect(health.parts).toContainEqual({
+      ...{ name: 'unit faulty', ok: false },
+      detail: expect.stringContaining('units[1].rated_hours_h: found -6'),
+    });
+    const list = await (await fetch(`${page}api/units`)).json();
+    expect(list.units.map(({ unit: id }: { unit: string }) => id)).toEqual(['vellmoor']);
+    expect(list.left_out).toMatchObject([{ unit: 'faulty', name: 'Faulty one' }]);
+    expect(list.left_out[0].faults[0]).toMatchObject({ path: 'units[1].rated_hours_h' });
+    expect(await rockhours.end('SIGTERM')).toBe(0);
   });
 
   it('names a port that is in use, of the page as of the broker', async () => {

@@ -1,3 +1,4 @@
+import type { LeftOutUnit } from '../../config/site.js';
 import type { AlarmCommand, CommandFault } from '../../core/alarm/command.js';
 import type { AlarmEntry, RecordedTransition } from '../../core/alarm/entry.js';
 import type { AlarmReport } from '../../core/alarm/report.js';
@@ -93,6 +94,8 @@ export interface PlantService {
   readonly siteName: string;
   readonly version: string;
   unitIds(): string[];
+  /** Units that are not run, as their configuration has faults; absent: none. */
+  leftOut?(): readonly LeftOutUnit[];
   /** How late scans are; absent where no scans are taken in. */
   readonly scanTimes?: ScanTimes;
   /** What waits: for the estimator (`pipeline`), for the database, for each webhook, by name. */

@@ -70,7 +70,13 @@ export class Rig {
     };
     const rules = rewindRules(site);
     const checkpoint_every_ms = (options.checkpoint_every_s ?? 600) * 1000;
-    const entering = new Entering({ ...common, ...rules, ...tells, checkpoint_every_ms });
+    const entering = new Entering({
+      ...common,
+      ...rules,
+      ...tells,
+      checkpoint_every_ms,
+      phase: () => 0,
+    });
     const runners = [...this.runners.values()];
     this.pipeline = new Pipeline({
       ...{ ...common, runners, entering },

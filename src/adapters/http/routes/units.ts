@@ -81,6 +81,9 @@ export const unitRoutes: Routes = (app, { service, tuning }) => {
         if (now === undefined) return [];
         return [glanceView(now, service.standing(id), service.heldBack(id).length)];
       }),
+      left_out: (service.leftOut?.() ?? []).map(({ id: unit, name, faults: found }) => ({
+        ...{ unit, name, faults: [...found] },
+      })),
     }),
   );
 

@@ -132,6 +132,23 @@ export const unitListSchema = z.object({
       held_back: z.number().describe('Shelved, suppressed by design or out of service'),
     }),
   ),
+  left_out: z
+    .array(
+      z.object({
+        unit: z.string().describe('Its id, or its place in the file where it has none of its own'),
+        name: z.string(),
+        faults: z.array(
+          z.object({
+            path: z.string(),
+            line: z.number().nullable(),
+            found: z.string(),
+            expected: z.string(),
+            hint: z.string().nullable(),
+          }),
+        ),
+      }),
+    )
+    .describe('Units that are not run, as their part of the configuration has faults'),
 });
 
 export const unitHoursSchema = z.object({

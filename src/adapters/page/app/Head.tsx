@@ -31,7 +31,8 @@ export function Head() {
 }
 
 function SheetLinks() {
-  const shown = model.units.value.length > 1 ? SHEETS : SHEETS.filter((name) => name !== 'site');
+  const many = model.units.value.length + model.leftOut.value.length > 1;
+  const shown = many ? SHEETS : SHEETS.filter((name) => name !== 'site');
   return (
     <nav id="sheets" aria-label="Sheets">
       {shown.map((name) => (

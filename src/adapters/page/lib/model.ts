@@ -1,5 +1,5 @@
 import { batch, computed, signal } from '@preact/signals';
-import type { Beat, Standing, StreamState, UnitDefinition, UnitList } from './wire.js';
+import type { Beat, LeftOut, Standing, StreamState, UnitDefinition, UnitList } from './wire.js';
 
 export type Connection = 'connecting' | 'live' | 'lost';
 
@@ -28,6 +28,8 @@ export class PageModel {
   /** Wall clock of the last change of `connection` to `lost`. */
   readonly lostSince_ms = signal(0);
   readonly units = signal<readonly UnitEntry[]>([]);
+  /** Units that are not run until their configuration is mended. */
+  readonly leftOut = signal<readonly LeftOut[]>([]);
   readonly selected = signal<string | null>(null);
   readonly standing = signal<readonly Standing[]>([]);
   /** Shelved, suppressed by design or out of service. */
@@ -49,6 +51,7 @@ export class PageModel {
     batch(() => {
       this.site.value = list.site;
       this.version.value = list.version;
+      this.leftOut.value = list.left_out;
       const before = this.units.value;
       this.units.value = list.units.map((summary) => {
         const known = before.find((entry) => entry.unit === summary.unit);

@@ -112,10 +112,18 @@ export interface UnitSummary {
   dispatchable: { power_MW: number } | null;
 }
 
+/** A unit that is not run, as its part of the configuration has faults. */
+export interface LeftOut {
+  unit: string;
+  name: string;
+  faults: { path: string; line: number | null; found: string; expected: string }[];
+}
+
 export interface UnitList {
   site: string;
   version: string;
   units: UnitSummary[];
+  left_out: LeftOut[];
 }
 
 /** What is told of an event, whatever has become of it. */

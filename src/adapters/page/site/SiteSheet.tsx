@@ -4,10 +4,11 @@ import { model, select } from '../lib/page.js';
 import { hrefOf } from '../lib/route.js';
 import { isOld, TRUST_WORDS, trustOf } from '../lib/trust.js';
 import { verdictOf } from '../lib/verdict.js';
+import type { LeftOut } from '../lib/wire.js';
 import { ChargeBar } from '../parts/ChargeBar.js';
 import { Unit } from '../parts/Unit.js';
 import { VerdictSign } from '../parts/VerdictSign.js';
-import { siteVerdict, verdictsOf } from './siteVerdict.js';
+import { leftOutVerdict, siteVerdict, verdictsOf } from './siteVerdict.js';
 
 /** Up to so many units the rows are tall, and beyond so many as low as they may be. */
 const FEW = 6;
@@ -23,8 +24,12 @@ function goTo(event: MouseEvent, unit: string): void {
 /** All units at one look: a row for each, always in the same place. */
 export function SiteSheet() {
   const units = model.units.value;
+  const leftOut = model.leftOut.value;
   const size = units.length <= FEW ? 'few' : units.length <= MANY ? 'some' : 'many';
-  const told = siteVerdict(verdictsOf(model.connection.value, units, model.standing.value));
+  const told = siteVerdict([
+    ...verdictsOf(model.connection.value, units, model.standing.value),
+    ...leftOut.map(leftOutVerdict),
+  ]);
   return (
     <section id="all-units" aria-labelledby="all-units-head" data-size={size}>
       <h1 id="all-units-head">All units</h1>
@@ -63,6 +68,9 @@ export function SiteSheet() {
         <tbody>
           {units.map((entry) => (
             <UnitRow key={entry.unit} entry={entry} />
+          ))}
+          {leftOut.map((one) => (
+            <LeftOutRow key={one.unit} unit={one} />
           ))}
         </tbody>
       </table>
@@ -112,6 +120,38 @@ function UnitRow({ entry }: { entry: UnitEntry }) {
         <span>{level === 'unknown' ? TRUST_WORDS[trust] : words}</span>
       </td>
       <Age entry={entry} />
+    </tr>
+  );
+}
+
+/** Faults that are listed in a row; the log and `rockhour check` have them all. */
+const FAULTS_MOST = 3;
+
+/** A unit that is not run: why, in place of figures. */
+function LeftOutRow({ unit: { unit, name, faults } }: { unit: LeftOut }) {
+  const { level, words } = leftOutVerdict({ unit, name, faults });
+  const more = faults.length - FAULTS_MOST;
+  return (
+    <tr data-unit-row={unit} data-level={level} data-left-out="">
+      <th scope="row">{name}</th>
+      <td class="left-out" colSpan={6}>
+        <ul>
+          {faults.slice(0, FAULTS_MOST).map(({ path, line, found, expected }) => (
+            <li key={path}>
+              {line !== null && `line ${line}: `}
+              <code>{path}</code>: found {found}, expected {expected}
+            </li>
+          ))}
+          {more > 0 && <li>and {more} more: rockhour check lists them</li>}
+        </ul>
+      </td>
+      <td class="well" data-cell="well">
+        <VerdictSign level={level} />
+        <span>{words}</span>
+      </td>
+      <td class="number" data-cell="age">
+        {DASH}
+      </td>
     </tr>
   );
 }

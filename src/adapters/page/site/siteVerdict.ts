@@ -2,7 +2,7 @@ import { counted } from '../lib/alarmOrder.js';
 import type { Connection, UnitEntry } from '../lib/model.js';
 import { trustOf } from '../lib/trust.js';
 import { type Level, type Verdict, verdictOf } from '../lib/verdict.js';
-import type { Standing } from '../lib/wire.js';
+import type { LeftOut, Standing } from '../lib/wire.js';
 
 export interface UnitVerdict extends Verdict {
   readonly name: string;
@@ -21,6 +21,12 @@ export function verdictsOf(
     const own = standing.filter((event) => event.unit === entry.unit);
     return { name: entry.name, ...verdictOf(trustOf(connection, entry), entry, own) };
   });
+}
+
+/** A unit that is not run: nothing at all is known of it. */
+export function leftOutVerdict({ name, faults }: LeftOut): UnitVerdict {
+  const words = `Left out: ${counted(faults.length, 'fault')} in its configuration.`;
+  return { name, level: 'unknown', words, because: '' };
 }
 
 /** The worst of all units in a few words, and which units it is about. */
