@@ -13,6 +13,7 @@ import { readSource, type SiteSource } from './config/load.js';
 import type { SiteConfig } from './config/site.js';
 import type { WatchEvent } from './core/watch/event.js';
 import { AlarmPart, DEFAULT_ALARMS } from './daemon/alarmPart.js';
+import { Backups } from './daemon/backups.js';
 import { catchUp } from './daemon/catchUp.js';
 import { type DaemonClock, SteadyClock, wallClock } from './daemon/clock.js';
 import { ClockSteps } from './daemon/clockSteps.js';
@@ -27,6 +28,7 @@ import {
   leftOutHealth,
   storeHealth,
   unitHealth,
+  unreadyReasons,
 } from './daemon/health.js';
 import { Hourly } from './daemon/hourly.js';
 import { Housekeeping } from './daemon/housekeeping.js';
@@ -119,6 +121,7 @@ class RockhourDaemon implements Daemon {
   private readonly ending: (() => void | Promise<void>)[] = [];
   private places: Promise<DaemonPlaces> | null = null;
   private ended: Promise<void> | null = null;
+  private isUp = false;
 
   constructor(
     private readonly site: SiteConfig,
@@ -269,6 +272,11 @@ class RockhourDaemon implements Daemon {
       kept: (unit, table) => this.speaker.sayOffers(unit, table),
       scanTimes: this.scanTimes,
       health: () => this.health(),
+      unready: () => this.unready(),
+      backups: new Backups({
+        ...{ site: site.name, version, journal, history, clock, counters, fresh: make },
+        ...{ rewinder: this.rewinder, future_tolerance_ms: rules.future_tolerance_ms },
+      }),
       backlogs: () => this.backlogs(),
       alarms: this.alarms,
     });
@@ -369,6 +377,7 @@ class RockhourDaemon implements Daemon {
       () => housekeeping.start(),
       () => housekeeping.stop(),
     );
+    this.isUp = true;
     return { url, broker: mqtt.name, folder };
   }
 
@@ -398,6 +407,7 @@ class RockhourDaemon implements Daemon {
   }
 
   private async end(): Promise<void> {
+    this.isUp = false;
     for (let end = this.ending.pop(); end; end = this.ending.pop()) await end();
   }
 
@@ -430,6 +440,12 @@ class RockhourDaemon implements Daemon {
           isStale: (unit) => this.service.now(unit)?.stale ?? true,
         }),
     };
+  }
+
+  private unready(): string[] {
+    const { intake, pipeline } = this;
+    const started = this.isUp && this.ended === null;
+    return unreadyReasons({ started, isStuck: intake.stuck, backlog: pipeline.backlog });
   }
 
   private health(): HealthPart[] {

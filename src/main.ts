@@ -20,6 +20,8 @@ const COMMANDS: Readonly<Record<string, () => Promise<{ register(program: Comman
   tune: () => import('./commands/tune.js'),
   sensors: () => import('./commands/sensors.js'),
   check: () => import('./commands/check.js'),
+  backup: () => import('./commands/backup.js'),
+  restore: () => import('./commands/restore.js'),
   admit: () => import('./commands/admit.js'),
 };
 

@@ -38,6 +38,26 @@ function complaint(body: string): string {
  *   a question that the daemon finds wrong, in its words
  */
 export async function askDaemon(base: string, path: string, body?: object): Promise<unknown> {
+  const text = await fetchDaemon(base, path, {
+    ...(body === undefined ? {} : { method: 'POST', body: JSON.stringify(body) }),
+    headers: {
+      accept: 'application/json',
+      ...(body === undefined ? {} : { 'content-type': 'application/json' }),
+    },
+  });
+  return jsonOf(base, text.toString('utf8'));
+}
+
+export interface Sent {
+  readonly method?: 'POST' | 'PUT';
+  readonly body?: string | Uint8Array<ArrayBuffer>;
+  readonly headers: Readonly<Record<string, string>>;
+  readonly patience_ms?: number;
+}
+
+/** The body of a daemon's answer; throws as `askDaemon`. */
+export async function fetchDaemon(base: string, path: string, sent: Sent): Promise<Buffer> {
+  const { patience_ms = PATIENCE_MS, ...request } = sent;
   if (!URL.canParse(base) || !/^https?:$/.test(new URL(base).protocol)) {
     throw new RockhourError(
       'USAGE',
@@ -45,21 +65,17 @@ export async function askDaemon(base: string, path: string, body?: object): Prom
     );
   }
   const address = base.replace(/\/+$/, '') + path;
-  const question = `${body === undefined ? 'GET' : 'POST'} ${address}`;
+  const question = `${sent.method ?? 'GET'} ${address}`;
   let status: number;
-  let text: string;
+  let bytes: Buffer;
   try {
     const response = await fetch(address, {
-      ...(body === undefined ? {} : { method: 'POST', body: JSON.stringify(body) }),
-      headers: {
-        accept: 'application/json',
-        ...tokenHeader(),
-        ...(body === undefined ? {} : { 'content-type': 'application/json' }),
-      },
-      signal: AbortSignal.timeout(PATIENCE_MS),
+      ...request,
+      headers: { ...sent.headers, ...tokenHeader() },
+      signal: AbortSignal.timeout(patience_ms),
     });
     status = response.status;
-    text = await response.text();
+    bytes = Buffer.from(await response.arrayBuffer());
   } catch (error) {
     // fetch wraps what the network said.
     const inner = error instanceof Error && error.cause !== undefined ? error.cause : error;
@@ -67,23 +83,26 @@ export async function askDaemon(base: string, path: string, body?: object): Prom
       cause: error,
     });
   }
+  if (status === 200) return bytes;
+  const text = bytes.toString('utf8');
   if (status >= 400 && status < 500 && !NOT_THE_QUESTION.has(status) && ownWords(text) !== null) {
     throw new RockhourError('USAGE', complaint(text), {
       advice: `The daemon at ${base} says so; mend the question.`,
     });
   }
-  if (status !== 200) {
-    throw new RockhourError(
-      'DAEMON_REFUSED',
-      `${question} was answered with ${status}: ${complaint(text)}`,
-    );
-  }
+  throw new RockhourError(
+    'DAEMON_REFUSED',
+    `${question} was answered with ${status}: ${complaint(text)}`,
+  );
+}
+
+export function jsonOf(base: string, text: string): unknown {
   try {
     return JSON.parse(text);
   } catch (error) {
     throw new RockhourError(
       'DAEMON_REFUSED',
-      `${question} was not answered in JSON but with ${JSON.stringify(text.slice(0, 80))}`,
+      `${base} has not answered in JSON but with ${JSON.stringify(text.slice(0, 80))}`,
       { cause: error, advice: 'Check that the address is that of a rockhour daemon.' },
     );
   }

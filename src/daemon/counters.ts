@@ -33,6 +33,11 @@ const OWN_COUNTS = [
   'scans_again',
   'estimates_revised',
   'rewind_failures',
+  /** Times that a unit was put back to a backup, and that it failed. */
+  'restores',
+  'restore_failures',
+  /** Backups that were no such thing, or of no use for the unit. */
+  'restores_refused',
   /** Indicators that began anew at a start: what was learned as healthy for them is lost. */
   'baselines_lost',
   /** Thermocouples of all scans by what became of them, and what they are together. */

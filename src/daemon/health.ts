@@ -99,6 +99,24 @@ export function leftOutHealth({ id, faults }: LeftOutUnit): HealthPart {
   return { name: `unit ${id}`, ok: false, detail };
 }
 
+/** Further behind its journal than this, its figures are of before [entries]. */
+export const READY_BEHIND_MOST = 10_000;
+
+/** Why the daemon cannot do its work now; empty where it can. */
+export function unreadyReasons(of: {
+  readonly started: boolean;
+  readonly isStuck: boolean;
+  readonly backlog: number;
+}): string[] {
+  return [
+    ...(of.started ? [] : ['it is still starting, or stops']),
+    ...(of.isStuck ? ['the journal cannot be written'] : []),
+    ...(of.backlog > READY_BEHIND_MOST
+      ? [`${of.backlog} readings are to be worked off, more than ${READY_BEHIND_MOST}`]
+      : []),
+  ];
+}
+
 /** Names told in full; the log has them all. */
 const NAMES_MOST = 3;
 

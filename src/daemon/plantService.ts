@@ -5,6 +5,7 @@ import type {
   HealthPart,
   PlantService,
   ReportQuestion,
+  RestoreAnswer,
   ServiceMessage,
   Spread,
   StoredHistory,
@@ -27,6 +28,7 @@ import type { CycleRecord } from '../core/watch/cycleRecord.js';
 import type { WatchEvent } from '../core/watch/event.js';
 import type { UnitWorth } from '../core/worth/unitWorth.js';
 import type { AlarmPart } from './alarmPart.js';
+import type { Backups } from './backups.js';
 import type { DaemonClock } from './clock.js';
 import type { Counters } from './counters.js';
 import { reportOffers } from './offerReports.js';
@@ -52,7 +54,9 @@ export interface PlantServiceParts {
   readonly alarms: AlarmPart;
   readonly clock: DaemonClock;
   readonly scanTimes: ScanTimes;
+  readonly backups: Backups;
   health(): HealthPart[];
+  unready(): string[];
   backlogs(): Record<string, number>;
   /** An offer table has been kept. */
   kept(unit: string, table: KeptTable): void;
@@ -250,8 +254,20 @@ export class DaemonService implements PlantService {
     return this.parts.history.alarms.transitions(of, from_ms, to_ms, most);
   }
 
+  backup(unit: string): Uint8Array | null {
+    return this.parts.backups.make(this.runner(unit));
+  }
+
+  restore(unit: string, file: Uint8Array, who: string): Promise<RestoreAnswer> {
+    return this.parts.backups.restore(this.runner(unit), file, who);
+  }
+
   health(): HealthPart[] {
     return this.parts.health();
+  }
+
+  unready(): string[] {
+    return this.parts.unready();
   }
 
   counters(): Record<string, number> {

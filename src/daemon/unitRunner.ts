@@ -112,9 +112,14 @@ export class UnitRunner {
     return this.state.time_ms !== null && this.awaited === null;
   }
 
-  /** What the state has raised and not returned, as it was raised. */
+  /** Waits for the journal to come to the time of a saved state. */
+  get isAwaiting(): boolean {
+    return this.awaited !== null;
+  }
+
+  /** What the state has raised and not returned, as it was raised; of one that is awaited, its own. */
   get standing(): readonly WatchEvent[] {
-    return [...this.raised.values()];
+    return this.awaited?.standing ?? [...this.raised.values()];
   }
 
   /** Index of the oldest scan that readings can still go into; null before the first reading. */
@@ -186,6 +191,21 @@ export class UnitRunner {
     const image = describedImage(checkpoint);
     this.awaited = { image, time_ms: checkpoint.time_ms, standing };
     this.startAt(from_seq);
+  }
+
+  /**
+   * Takes a scan without readings in, on a copy: of a state that was damaged, but not so that it cannot
+   * be put back, that fails. @throws what the core throws, and RangeError for an estimate that is none
+   */
+  prove(state = this.state): void {
+    const copy = this.core.restoreUnit(this.unit, this.core.saveUnit(state));
+    const values = new Float64Array(this.unit.channels.length).fill(Number.NaN);
+    const time_ms = (state.time_ms ?? 0) + this.unit.scan_period_s * 1000;
+    const scan = { time_ms, values, held: new Uint8Array(values.length) };
+    const ask = { hours_at_W: [], profile: false };
+    const { state_of_charge } = this.core.advance(this.unit, copy, scan, ask).estimate;
+    if (Number.isFinite(state_of_charge) || state_of_charge === null) return;
+    throw new RangeError(`state must yield a finite state of charge, got ${state_of_charge}`);
   }
 
   /** The whole state; null before the first scan, and before a saved one is taken over. */
@@ -314,7 +334,7 @@ export class UnitRunner {
    * came late. What was last told of hours and headroom stays.
    */
   adopt(other: UnitRunner): void {
-    if (other.taken_seq !== this.taken_seq || this.awaited !== null) {
+    if (other.taken_seq !== this.taken_seq || this.isAwaiting) {
       throw new RangeError(
         `other must have entries up to ${this.taken_seq}, got ${other.taken_seq}`,
       );
@@ -322,6 +342,7 @@ export class UnitRunner {
     this.assembler = other.assembler;
     this.state = other.state;
     this.raised = other.raised;
+    this.awaited = other.awaited;
     const { estimate, profile, measured, counts, watch } = other.view;
     Object.assign(this.view, { estimate, profile, measured, counts, watch });
   }

@@ -36,7 +36,7 @@ describe('asking a daemon', () => {
   it.each([
     ['/often', 'answered with 429: more than 3'],
     ['/nothing', 'answered with 404: Not Found'],
-    ['/html', 'not answered in JSON'],
+    ['/html', 'has not answered in JSON'],
     ['/proxy', 'answered with 502: Bad gateway'],
     ['/else', 'answered with 500: an empty body'],
   ])('tells what came back from %s', async (path, words) => {

@@ -1,7 +1,7 @@
 import { createHash } from 'node:crypto';
 import { deserialize, serialize } from 'node:v8';
 import type { UnitDefinition } from '../../core/definitions.js';
-import { shapeOf } from '../../core/unitShape.js';
+import { shapeOf, type UnitShape } from '../../core/unitShape.js';
 import type { Database } from './database.js';
 
 /** Newest checkpoints kept of each unit. */
@@ -40,6 +40,11 @@ export class Checkpoints {
   constructor(private readonly database: Database) {}
 
   add(unit: UnitDefinition, checkpoint: Checkpoint): void {
+    this.addOf(unit, shapeOf(unit), checkpoint);
+  }
+
+  /** A state that was saved under a definition of another shape. */
+  addOf(unit: { readonly id: string }, shape: UnitShape, checkpoint: Checkpoint): void {
     const { time_ms, journal_seq, image } = checkpoint;
     this.database.transaction(() => {
       this.database
@@ -47,7 +52,7 @@ export class Checkpoints {
           `INSERT OR REPLACE INTO checkpoints (unit, time, journal_seq, fingerprint, image)
            VALUES (?, ?, ?, ?, ?)`,
         )
-        .run(unit.id, time_ms, journal_seq, fingerprint(unit), serialize(image));
+        .run(unit.id, time_ms, journal_seq, printOf(shape), serialize(image));
       this.database
         .prepare(
           `DELETE FROM checkpoints WHERE unit = ? AND time NOT IN

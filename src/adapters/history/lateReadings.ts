@@ -64,6 +64,14 @@ export class LateReadings {
       .all(unit, time_ms, seq, through_seq, most) as LateReading[];
   }
 
+  /** How many of before a time came behind a number of the journal. */
+  countBefore(unit: string, time_ms: number, after_seq: number): number {
+    return this.database
+      .prepare('SELECT count(*) FROM late_readings WHERE unit = ? AND time < ? AND seq > ?')
+      .pluck()
+      .get(unit, time_ms, after_seq) as number;
+  }
+
   /** Readings that are of no use. */
   drop(unit: string, readings: readonly LateReading[]): void {
     const remove = this.database.prepare(

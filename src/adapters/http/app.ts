@@ -16,6 +16,7 @@ import { JsonWriter } from './json.js';
 import { answerClientError, type Servers } from './listening.js';
 import { transformSchemas } from './openapi.js';
 import { alarmRoutes } from './routes/alarms.js';
+import { backupRoutes } from './routes/backup.js';
 import { historyRoutes } from './routes/history.js';
 import { loginRoutes } from './routes/login.js';
 import { offerRoutes } from './routes/offers.js';
@@ -211,6 +212,7 @@ export async function createHttpApp(
         rewindRoutes,
         reportRoutes,
         alarmRoutes,
+        backupRoutes,
         streamRoutes,
       ]) {
         add(typed, context);

@@ -13,6 +13,7 @@ export const FAULT_CODES = [
   'unknown_event',
   'wrong_state',
   'unknown_offers',
+  'unusable_backup',
   'unknown_route',
   'unreadable_body',
   'not_acceptable',

@@ -23,6 +23,20 @@ export type AlarmAnswer =
   | { readonly accepted: true; readonly command: AlarmCommand; readonly entry: AlarmEntry | null }
   | { readonly accepted: false; readonly fault: CommandFault };
 
+/** What became of a unit that was to be put back to a backup. */
+export type RestoreAnswer =
+  | {
+      readonly accepted: true;
+      readonly record: RewindRecord;
+      /** The unit's definition is of the same shape as then; else it was carried over. */
+      readonly same_shape: boolean;
+      /** The journal had every reading since. */
+      readonly reaches: boolean;
+      readonly anew: readonly string[];
+      readonly lost: readonly string[];
+    }
+  | { readonly accepted: false; readonly is: 'unusable' | 'busy'; readonly fault: string };
+
 /** A maintenance report that is asked for. */
 export interface ReportQuestion {
   readonly from_ms: number;
@@ -170,7 +184,12 @@ export interface PlantService {
     to_ms: number,
     most: number,
   ): RecordedTransition[];
+  /** The whole state of a unit as a file; null before its first scan. */
+  backup(unit: string): Uint8Array | null;
+  restore(unit: string, file: Uint8Array, who: string): Promise<RestoreAnswer>;
   health(): HealthPart[];
+  /** Why it cannot do its work yet, or not now; empty where it can. */
+  unready(): string[];
   /** Counters by name: messages in, malformed, late, repeated, ... */
   counters(): Record<string, number>;
   /** Returns the function that ends the subscription. */

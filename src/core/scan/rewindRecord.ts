@@ -28,6 +28,8 @@ export interface RewindRecord {
   /** At most `MOST_DIFFERENCES`; `differences_left_out` are more. */
   readonly differences: readonly RewindDifference[];
   readonly differences_left_out: number;
+  /** Where the unit was put back to a backup: of when its state is, and who did it; else absent. */
+  readonly restored?: { readonly state_of: string; readonly who: string };
 }
 
 export const MOST_DIFFERENCES = 100;

@@ -9,24 +9,26 @@ import { toldTime } from './messages.js';
  * @param told what is told as raised and not as returned
  * @param standing what the state of now has raised, as it raised it in the past
  * @param time of the newest scan, ISO 8601 UTC
+ * @param by what it is seen by
  */
 export function hindsight(
   told: readonly WatchEvent[],
   standing: readonly WatchEvent[],
   time: string,
+  by = 'readings that came late',
 ): WatchEvent[] {
   const ids = (events: readonly WatchEvent[]) => new Set(events.map(({ id }) => id));
   const [toldIds, standingIds] = [ids(told), ids(standing)];
   const returned = told
     .filter(({ id }) => !standingIds.has(id))
     .map((event): WatchEvent => {
-      const message = 'By readings that came late, it does not hold now.';
+      const message = `By ${by}, it does not hold now.`;
       return { ...event, transition: 'returned', time, message };
     });
   const raised = standing
     .filter(({ id }) => !toldIds.has(id))
     .map((event): WatchEvent => {
-      const since = `Seen only by readings that came late; holds since ${toldTime(event.time)}.`;
+      const since = `Seen only by ${by}; holds since ${toldTime(event.time)}.`;
       return { ...event, time, message: `${event.message} ${since}` };
     });
   return [...returned, ...raised];

@@ -20,6 +20,8 @@ export interface RerunParts {
   readonly second: UnitRunner;
   /** Source time of that state [ms]. */
   readonly from_ms: number;
+  /** No scan of before is entered [ms]; absent: from the first that is made again. */
+  readonly enter_from_ms?: number;
   /** Late readings up to this number of the journal are taken in. */
   readonly through_seq: number;
   /** Spacing of the states that are kept [ms]. */
@@ -48,9 +50,10 @@ export class Rerun {
   private readonly period_ms: number;
 
   constructor(private readonly parts: RerunParts) {
-    const { history, second, from_ms } = parts;
+    const { history, second, from_ms, enter_from_ms = Number.NEGATIVE_INFINITY } = parts;
     this.period_ms = second.unit.scan_period_s * 1000;
-    this.past = history.past(second.unit, second.openFrom! * this.period_ms);
+    const open_ms = (second.openFrom ?? Number.NEGATIVE_INFINITY) * this.period_ms;
+    this.past = history.past(second.unit, Math.max(open_ms, enter_from_ms));
     this.latePlace = { time_ms: this.past.from_ms, seq: -1 };
     this.lastPoint_ms = from_ms;
   }
@@ -126,6 +129,7 @@ export class Rerun {
     const { live, second, history, point_every_ms } = this.parts;
     const { estimate, profile, watch, cycle, events } = step.step;
     const { index, scan } = step.closed;
+    if (scan.time_ms < this.past.from_ms) return;
     const newest_ms = live.view.estimate ? Date.parse(live.view.estimate.time) : scan.time_ms;
     this.past.enter(
       { estimate, measured: step.measured, profile, watch, cycle },

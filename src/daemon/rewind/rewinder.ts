@@ -6,7 +6,8 @@ import type { Log } from '../../log.js';
 import type { SteadyClock } from '../clock.js';
 import type { Entering } from '../entering.js';
 import type { RunnerStep, UnitRunner } from '../unitRunner.js';
-import { type Outcome, rewindWork, type WorkParts } from './work.js';
+import type { GivenStart } from './given.js';
+import { type Outcome, restoreWork, rewindWork, type WorkParts } from './work.js';
 
 export interface RewinderOptions extends WorkParts {
   readonly runners: readonly UnitRunner[];
@@ -37,8 +38,17 @@ interface Waiting {
   last_ms: number;
 }
 
+interface Given {
+  readonly runner: UnitRunner;
+  readonly start: GivenStart;
+  done(record: RewindRecord): void;
+  failed(thrown: unknown): void;
+}
+
 interface Job {
   readonly runner: UnitRunner;
+  /** A state from outside is where it begins. */
+  readonly given?: Given;
   readonly work: Generator<'more' | 'wait', Outcome | null>;
 }
 
@@ -49,6 +59,7 @@ interface Job {
  */
 export class Rewinder {
   private readonly waiting = new Map<string, Waiting>();
+  private given: Given[] = [];
   private job: Job | null = null;
   private timer: NodeJS.Timeout | null = null;
   private running = false;
@@ -73,7 +84,24 @@ export class Rewinder {
     this.running = false;
     if (this.timer) clearTimeout(this.timer);
     this.timer = null;
+    const undone = [...this.given.splice(0), ...(this.job?.given ? [this.job.given] : [])];
     this.job = null;
+    for (const { failed } of undone) failed(new Error('the daemon was stopped meanwhile'));
+  }
+
+  /**
+   * Puts a unit back to a state from outside and makes the scans since again, beside the live unit, as
+   * for late readings. Until it is done nothing but estimates has changed; a kill amid it undoes the rest.
+   */
+  goOnFrom(start: GivenStart): Promise<RewindRecord> {
+    const { id } = start.second.unit;
+    const runner = this.options.runners.find(({ unit }) => unit.id === id);
+    if (!this.running || runner === undefined)
+      throw new RangeError(`unit must be one that runs, got ${id}`);
+    return new Promise((done, failed) => {
+      this.given.push({ runner, start, done, failed });
+      this.poll();
+    });
   }
 
   /** How it stands with a unit's late readings, in words; empty where there never were any. */
@@ -123,6 +151,16 @@ export class Rewinder {
     if (!this.running || this.job || this.timer) return;
     const { runners, steady, rules, entering, backlog } = this.options;
     if (backlog() > MOST_BEHIND) return;
+    const given = this.given.shift();
+    if (given) {
+      this.job = {
+        runner: given.runner,
+        given,
+        work: restoreWork(given.runner, given.start, this.options),
+      };
+      this.goOn(0);
+      return;
+    }
     const now = steady.now();
     // What may be of a clock that is off by hours is no late reading.
     const inDoubt = runners.filter((one) => one.isZoneInDoubt).map(({ unit }) => unit.id);
@@ -175,9 +213,17 @@ export class Rewinder {
       }
       this.job = null;
       if (outcome) this.swap(job.runner, outcome);
+      if (outcome) job.given?.done(outcome.record);
     } catch (thrown) {
-      this.failed(job.runner, thrown);
+      if (job.given) this.notRestored(job.given, thrown);
+      else this.failed(job.runner, thrown);
     }
+  }
+
+  private notRestored({ failed }: Given, thrown: unknown): void {
+    this.job = null;
+    this.options.counters.add('restore_failures');
+    failed(thrown);
   }
 
   private work({ work }: Job): { waits: boolean; outcome?: Outcome | null } {
@@ -194,17 +240,26 @@ export class Rewinder {
     const { counters, log, history, stepped, event, alarmsMoved } = this.options;
     const { id } = live.unit;
     live.adopt(second);
+    // A unit without a reading so far sees its scans close from here on.
+    const steady_ms = this.options.steady.now();
+    if (live.plantClock.at(steady_ms) === null && second.newest_ms !== null)
+      live.plantClock.observe(second.newest_ms, steady_ms);
     this.failures.delete(id);
     this.lastDone.set(id, record);
     counters.add('rewinds');
     counters.add('scans_again', record.scans);
     counters.add('estimates_revised', record.revised);
     counters.add('late_used', record.late_used);
-    const { from, to, scans, late_used, revised } = record;
-    log.info(
-      { unit: id, from, to, scans, late_used, revised, differences: record.differences.length },
-      `${late_used} readings that came late are in their scans now; ${scans} scans made again`,
-    );
+    const { from, to, scans, late_used, revised, restored } = record;
+    if (restored) {
+      counters.add('restores');
+      const words = `put back to the state of ${restored.state_of} by ${restored.who}`;
+      log.warn({ unit: id, from, to, scans, revised }, `${words}; ${scans} scans made again`);
+    } else
+      log.info(
+        { unit: id, from, to, scans, late_used, revised, differences: record.differences.length },
+        `${late_used} readings that came late are in their scans now; ${scans} scans made again`,
+      );
     for (const one of events) event(one);
     const { last } = rerun;
     const { estimate } = live.view;

@@ -7,6 +7,7 @@ import type { DaemonClock } from '../clock.js';
 import type { Counters } from '../counters.js';
 import type { Notices } from '../notices.js';
 import type { UnitRunner } from '../unitRunner.js';
+import type { GivenStart } from './given.js';
 import { planRewind } from './plan.js';
 import { Rerun } from './rerun.js';
 import type { RewindRules } from './rules.js';
@@ -69,27 +70,58 @@ export function* rewindWork(
   return conclude(rerun, second, used, through_seq, parts);
 }
 
+/** The same from a state that was given, instead of a stored one; what is late and waits waits on. */
+export function* restoreWork(
+  live: UnitRunner,
+  start: GivenStart,
+  parts: WorkParts,
+): Generator<'more' | 'wait', Outcome | null> {
+  const { journal, history, counters, rules, isBusy } = parts;
+  const { id } = live.unit;
+  const { second, enter_from_ms, from_seq } = start;
+  const { time_ms: from_ms } = start.checkpoint;
+  if (live.isAwaiting) throw new RangeError(`unit ${id} is still being put back to another state`);
+  const through_seq = history.late.taken(id);
+  const too_late = history.late.countBefore(id, enter_from_ms, from_seq);
+  const rerun = new Rerun({
+    ...{ journal, history, live, second, from_ms, through_seq, enter_from_ms },
+    point_every_ms: rules.point_every_ms,
+    isAtRest: () => !isBusy(live),
+  });
+  yield* rerun.run();
+  counters.add('too_late', too_late);
+  // It has been through all entries that the live one has, though they may all be of other units.
+  second.startAt(live.seq);
+  return conclude(rerun, second, 0, null, parts, start);
+}
+
 /** What a rewind comes to, in the same transaction as its last scan. */
 function conclude(
   rerun: Rerun,
   second: UnitRunner,
   used: number,
-  through_seq: number,
-  { history, clock }: WorkParts,
+  through_seq: number | null,
+  { history, clock, rules }: WorkParts,
+  given?: GivenStart,
 ): Outcome {
   const { unit } = second;
   rerun.past.end();
   rerun.dropStates();
   const state = second.checkpoint();
   if (state) history.checkpoints.add(unit, state);
-  history.late.take(unit.id, through_seq);
-  const span = { from_ms: rerun.from_ms, end_ms: rerun.reached_ms + 1 };
+  if (through_seq !== null) history.late.take(unit.id, through_seq);
+  if (given) keepGiven(given, state !== null, history, rules);
+  const { reached_ms } = rerun;
+  const span = { from_ms: Math.min(rerun.from_ms, reached_ms), end_ms: reached_ms + 1 };
   const own = ({ kind }: WatchEvent) => !isOfTheMachine(kind);
   const told = history.events.between(unit.id, span.from_ms, span.end_ms, 10_000).filter(own);
   const found = differences(told, rerun.events, unit.scan_period_s * 1000);
   const time = new Date(rerun.reached_ms).toISOString();
   const active = history.alarms.active(unit.id).filter(own);
-  const events = hindsight(active, second.standing, time).filter((one) => history.events.add(one));
+  const by = given ? 'the state that the unit was put back to' : undefined;
+  const events = hindsight(active, second.standing, time, by).filter((one) =>
+    history.events.add(one),
+  );
   const newest = history.estimates.latest(unit.id);
   if (newest) second.view.estimate = newest;
   const record: RewindRecord = {
@@ -103,9 +135,24 @@ function conclude(
     revision: history.estimates.newestRevision(unit.id, span),
     differences: found.slice(0, MOST_DIFFERENCES),
     differences_left_out: Math.max(0, found.length - MOST_DIFFERENCES),
+    ...(given ? { restored: given.restored } : {}),
   };
   history.rewinds.add(record);
   return { rerun, second, record, events };
+}
+
+/** States of before are of what was put aside; no late reading brings them back. */
+function keepGiven(
+  { second, checkpoint, shape }: GivenStart,
+  isTakenOver: boolean,
+  history: History,
+  { point_every_ms }: RewindRules,
+): void {
+  const { unit } = second;
+  history.rewindPoints.forgetAfter(unit.id, Number.MIN_SAFE_INTEGER, checkpoint.time_ms + 1);
+  if (shape === null) history.rewindPoints.add(unit, checkpoint, point_every_ms);
+  // It comes to its time with readings that are still to come; a restart before has it from here.
+  else if (!isTakenOver) history.checkpoints.addOf(unit, shape, checkpoint);
 }
 
 function tellUseless(

@@ -9,6 +9,7 @@ import { testApp } from './httpApp.js';
 const TABLE = {
   'GET /': 'public',
   'GET /api/live': 'public',
+  'GET /api/ready': 'public',
   'GET /api/login': 'public',
   'POST /api/login': 'public',
   'POST /api/logout': 'public',
@@ -48,6 +49,8 @@ const TABLE = {
   'POST /api/alarms/reset': 'acknowledge',
   'POST /api/alarms/out-of-service': 'configure',
   'POST /api/alarms/return-to-service': 'configure',
+  'GET /api/units/{unit}/backup': 'configure',
+  'PUT /api/units/{unit}/backup': 'configure',
 } as const;
 
 const { access, tokens, list } = holders();
@@ -61,7 +64,7 @@ afterAll(() => built.app.close());
 afterEach(() => access.replace(list));
 
 function ask(route: string, headers: Record<string, string> = {}, payload?: object) {
-  const [method, path] = route.split(' ') as ['GET' | 'POST', string];
+  const [method, path] = route.split(' ') as ['GET' | 'POST' | 'PUT', string];
   const url = path.replace('{unit}', 'north').replace('{no}', '1');
   // A stream would not end by itself.
   const accept = path === '/api/stream' ? { accept: 'text/html' } : {};

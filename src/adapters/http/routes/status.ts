@@ -1,16 +1,18 @@
 import { z } from 'zod';
+import { covers } from '../../../access/role.js';
 import { metricsText } from '../metrics.js';
 import { faults, type RouteContext, type Routes } from '../routes.js';
 import { countersSchema, healthSchema } from '../schema/answers.js';
+import { readySchema } from '../schema/backup.js';
 
 /** What this adapter counts itself, beside the counters of the daemon. */
 function ownCounters({ json, stream }: RouteContext): Record<string, number> {
   return { http_non_finite_numbers: json.nonFinite, http_slow_streams_ended: stream.slowEnded };
 }
 
-/** GET /api/health, /api/counters, /metrics, /api/openapi.json */
+/** GET /api/ready, /api/health, /api/counters, /metrics, /api/openapi.json */
 export const statusRoutes: Routes = (app, context) => {
-  const { service } = context;
+  const { service, entrance } = context;
   const tags = ['status'];
   // A probe must not be turned away because a page asks much.
   const config = { role: 'view', rateLimit: false } as const;
@@ -35,6 +37,30 @@ export const statusRoutes: Routes = (app, context) => {
       const ok = parts.every((part) => part.ok);
       reply.code(ok ? 200 : 503);
       return { ok, site: service.siteName, version: service.version, parts: [...parts] };
+    },
+  );
+
+  app.get(
+    '/api/ready',
+    {
+      config: { role: 'public', rateLimit: false },
+      schema: {
+        operationId: 'ready',
+        summary: 'Whether it can do its work: units started, journal written, readings worked off',
+        description: '200 if so, else 503. Why not is told to whoever may look.',
+        tags,
+        response: {
+          200: readySchema.describe('It can'),
+          503: readySchema.describe('It cannot, yet or now'),
+        },
+      },
+    },
+    async ({ holder }, reply) => {
+      const reasons = service.unready();
+      const ready = reasons.length === 0;
+      reply.code(ready ? 200 : 503);
+      const mayLook = holder === null ? entrance.access.isOpen : covers(holder.role, 'view');
+      return { ready, ...(mayLook && !ready ? { reasons } : {}) };
     },
   );
 

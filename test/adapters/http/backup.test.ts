@@ -1,0 +1,48 @@
+import { afterEach, describe, expect, it } from 'vitest';
+import { holders } from '../../access/holders.js';
+import { testApp } from './httpApp.js';
+
+const { access, tokens } = holders();
+let built: Awaited<ReturnType<typeof testApp>>;
+afterEach(() => built.app.close());
+const url = '/api/units/north/backup';
+const type = { 'content-type': 'application/gzip' };
+
+describe('a backup over HTTP', () => {
+  it('is a file, and comes back with the name of whoever did it', async () => {
+    built = await testApp({ access });
+    const authorization = `Bearer ${tokens.configure}`;
+    const file = await built.app.inject({ url, headers: { authorization } });
+    expect(file.headers['content-type']).toBe('application/gzip');
+    expect(file.headers['content-disposition']).toContain('north.backup.gz');
+    const put = (payload: Buffer | undefined, query = '') =>
+      built.app.inject({
+        ...{ method: 'PUT', url: `${url}${query}`, headers: { authorization, ...type } },
+        ...(payload === undefined ? {} : { payload }),
+      });
+    const done = await put(file.rawPayload, '?who=Ada');
+    expect(done.json()).toMatchObject({ unit: 'north', who: 'a_configure (Ada)', scans: 3 });
+    const bad = await put(Buffer.from('another'));
+    expect([bad.statusCode, bad.json().error.code]).toEqual([400, 'unusable_backup']);
+    expect(bad.json().error.message).toBe('the file is no backup of a unit');
+    expect((await put(undefined)).json().error.code).toBe('unusable_backup');
+    expect((await put(Buffer.alloc(33 * 1024 * 1024))).statusCode).toBe(413);
+    // The large body is this route's alone.
+    const other = await built.app.inject({
+      ...{ method: 'POST', url: '/api/alarms/acknowledge', payload: Buffer.alloc(20_000) },
+      headers: { authorization, ...type },
+    });
+    expect(other.statusCode).toBe(413);
+  });
+
+  it('tells a machine whether it is ready, and why not only whoever may look', async () => {
+    built = await testApp({ access });
+    const ask = (headers = {}) => built.app.inject({ url: '/api/ready', headers });
+    expect((await ask()).json()).toEqual({ ready: true });
+    built.plant.missing = ['the journal cannot be written'];
+    const no = await ask();
+    expect([no.statusCode, no.json()]).toEqual([503, { ready: false }]);
+    const told = await ask({ authorization: `Bearer ${tokens.view}` });
+    expect(told.json()).toEqual({ ready: false, reasons: ['the journal cannot be written'] });
+  });
+});
