@@ -46,7 +46,7 @@ interface Row {
   quality: number;
 }
 
-const SCHEMA = [
+export const JOURNAL_SCHEMA = [
   `CREATE TABLE sources (
      no INTEGER PRIMARY KEY, unit TEXT NOT NULL, channel TEXT NOT NULL, UNIQUE (unit, channel));
    -- time: source time in ms, or the scan index of a close mark; value: SI, NULL for a bad reading.
@@ -89,7 +89,7 @@ export class Journal {
   start(): void {
     if (this.database) return;
     try {
-      this.open(openDatabase(this.file, 'full', SCHEMA));
+      this.open(openDatabase(this.file, 'full', JOURNAL_SCHEMA));
     } catch (thrown) {
       if (!isDamage(thrown) || !wasOurs(this.file, 'entries')) throw thrown;
       this.renew(thrown);
@@ -125,7 +125,7 @@ export class Journal {
     const { last } = this;
     this.stop();
     const kept = moveAside(this.file);
-    const fresh = openDatabase(this.file, 'full', SCHEMA);
+    const fresh = openDatabase(this.file, 'full', JOURNAL_SCHEMA);
     const rows = fresh.transaction(() =>
       takeOverRows(kept, fresh, [
         { table: 'sources', key: 'no', most: MOST_TAKEN_OVER },
