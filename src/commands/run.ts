@@ -66,7 +66,7 @@ async function run(options: RunOptions): Promise<void> {
   process.on('SIGHUP', () => void reloading.reload(options.config));
   await Promise.race([reloading.start({ source, site }), asked]);
   log.info(`${await Promise.race([asked, lost])}: stops`);
-  await stopInTime(reloading);
+  if (!(await stopInTime(reloading))) log.warn('what did not end within 4.5 s is left behind');
   // Sockets of a service that hangs would keep the process.
   process.exit();
 }

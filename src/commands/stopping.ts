@@ -17,12 +17,13 @@ export function askedToStop(): Promise<NodeJS.Signals> {
   });
 }
 
-/** Stops within five seconds, whatever hangs. */
-export async function stopInTime(daemon: Pick<Daemon, 'stop'>): Promise<void> {
+/** Stops within five seconds, whatever hangs. @returns false where something was left behind */
+export async function stopInTime(daemon: Pick<Daemon, 'stop'>): Promise<boolean> {
   let timer: NodeJS.Timeout | undefined;
-  const limit = new Promise<void>((resolve) => {
-    timer = setTimeout(resolve, STOP_MS - 500);
+  const limit = new Promise<boolean>((resolve) => {
+    timer = setTimeout(() => resolve(false), STOP_MS - 500);
   });
-  await Promise.race([daemon.stop(), limit]);
+  const isWhole = await Promise.race([daemon.stop().then(() => true), limit]);
   clearTimeout(timer);
+  return isWhole;
 }
