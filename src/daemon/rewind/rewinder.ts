@@ -106,12 +106,18 @@ export class Rewinder {
 
   /** How it stands with a unit's late readings, in words; empty where there never were any. */
   words(unit: string): string {
-    if (this.busyWith === unit) return 'makes scans again with late readings';
+    if (this.busyWith === unit)
+      return this.job?.given
+        ? 'is being put back to a backup'
+        : 'makes scans again with late readings';
     if (this.waiting.has(unit)) return 'late readings wait to be taken in';
     const last = this.lastDone.get(unit);
     if (!last) return '';
-    const { done, late_used, scans, revision } = last;
-    return `last rewind ${done}: ${late_used} late readings, ${scans} scans made again, revision ${revision}`;
+    const { done, late_used, scans, revision, restored } = last;
+    const what = restored
+      ? `to the backup of ${restored.state_of} by ${restored.who}`
+      : `${late_used} late readings`;
+    return `last rewind ${done}: ${what}, ${scans} scans made again, revision ${revision}`;
   }
 
   /** Unit whose scans are made again at present. */
