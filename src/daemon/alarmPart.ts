@@ -202,6 +202,7 @@ export class AlarmPart {
       for (const unit of history.write(() => history.alarms.passTime(now_ms))) this.moved(unit);
     } catch (thrown) {
       counters.add('history_failures');
+      counters.failed(thrown);
       notices.warn('history_failures', reasonOf(thrown));
     }
   }

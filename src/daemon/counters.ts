@@ -5,6 +5,7 @@ import { WEBHOOK_COUNTS } from '../adapters/notify/webhookForwarder.js';
 import { READING_FATES } from '../core/scan/assemble.js';
 import type { ScanCounts } from '../core/scanCounts.js';
 import { IMPLAUSIBLE_KINDS } from '../core/track/plausible.js';
+import { ERRORS, type ErrorCode, RockhourError } from '../errors.js';
 
 /** Counters of the daemon itself; those of its parts are documented there. */
 const OWN_COUNTS = [
@@ -90,9 +91,12 @@ export type CounterName =
   | (typeof FORWARDER_COUNTS)[number]
   | (typeof WEBHOOK_COUNTS)[number];
 
+const CODES = Object.keys(ERRORS) as ErrorCode[];
+
 /** All counters by name, from 0 at the start of the process. */
 export class Counters {
   private readonly counts = new Map<string, number>();
+  private readonly codes = new Map<ErrorCode, number>(CODES.map((code) => [code, 0]));
 
   constructor() {
     for (const list of [
@@ -110,6 +114,17 @@ export class Counters {
 
   add(name: CounterName, by = 1): void {
     this.counts.set(name, (this.counts.get(name) ?? 0) + by);
+  }
+
+  /** Counts a failure that the daemon went on from, by its code; what has none is a fault of its own. */
+  failed(thrown: unknown): void {
+    const code = thrown instanceof RockhourError ? thrown.code : 'INTERNAL';
+    this.codes.set(code, (this.codes.get(code) ?? 0) + 1);
+  }
+
+  /** Those failures by code, all codes. */
+  errors(): Record<ErrorCode, number> {
+    return Object.fromEntries(this.codes) as Record<ErrorCode, number>;
   }
 
   /** Adds what one scan brought and what of it was not used. */

@@ -179,6 +179,7 @@ export class Entering {
 
   storeFailed(kind: 'journal_failures' | 'history_failures', thrown: unknown): void {
     this.storeTrouble = reasonOf(thrown);
+    this.options.counters.failed(thrown);
     this.options.counters.add(kind);
     this.options.notices.warn(kind, this.storeTrouble);
   }

@@ -80,6 +80,7 @@ export class Housekeeping {
       goesOn = history.rollUp();
     } catch (thrown) {
       counters.add('history_failures');
+      counters.failed(thrown);
       notices.warn('history_failures', reasonOf(thrown));
     }
     const wait_ms = goesOn ? ROLL_UP_EVERY_MS : RETENTION_EVERY_MS;
@@ -100,6 +101,7 @@ export class Housekeeping {
       this.options.rewinder.forgetOld();
     } catch (thrown) {
       counters.add('history_failures');
+      counters.failed(thrown);
       notices.warn('history_failures', reasonOf(thrown));
     }
   }

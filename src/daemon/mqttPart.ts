@@ -10,7 +10,7 @@ import type { SparkplugHost } from '../adapters/mqtt/sparkplug/host.js';
 import { parseTopic, topicOf } from '../adapters/mqtt/sparkplug/topics.js';
 import { TopicSet } from '../adapters/mqtt/topicRules.js';
 import type { MqttConfig } from '../config/site.js';
-import { withoutCredentials } from '../errors.js';
+import { RockhourError, withoutCredentials } from '../errors.js';
 import type { Log } from '../log.js';
 import type { DaemonClock } from './clock.js';
 import type { Counters } from './counters.js';
@@ -97,6 +97,7 @@ export class MqttPart {
       up: () => this.up(),
       down: (reason) => {
         this.lost = reason;
+        options.counters.failed(new RockhourError('BROKER_UNREACHABLE', reason));
         this.heard();
         options.edgeNodes.linkDown();
         // By kind and minute: two clients with one client id would push each other out for ever.

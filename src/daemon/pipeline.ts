@@ -255,6 +255,7 @@ export class Pipeline {
   private failed(runner: UnitRunner, thrown: unknown): void {
     const { counters, notices, history, entering } = this.options;
     counters.add('scan_failures');
+    counters.failed(thrown);
     this.failing.set(runner.unit.id, reasonOf(thrown));
     notices.warn(
       `scan_failures ${runner.unit.id}`,

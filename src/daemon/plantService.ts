@@ -27,6 +27,7 @@ import type { WatchView } from '../core/watch/causes.js';
 import type { CycleRecord } from '../core/watch/cycleRecord.js';
 import type { WatchEvent } from '../core/watch/event.js';
 import type { UnitWorth } from '../core/worth/unitWorth.js';
+import type { ErrorCode } from '../errors.js';
 import type { AlarmPart } from './alarmPart.js';
 import type { Backups } from './backups.js';
 import type { DaemonClock } from './clock.js';
@@ -272,6 +273,10 @@ export class DaemonService implements PlantService {
 
   counters(): Record<string, number> {
     return this.parts.counters.all();
+  }
+
+  errors(): Record<ErrorCode, number> {
+    return this.parts.counters.errors();
   }
 
   subscribe(listener: (message: ServiceMessage) => void): () => void {

@@ -11,7 +11,7 @@ import { Access } from '../../access/access.js';
 import { LoginFailures } from '../../access/failures.js';
 import { addGuard, type Entrance, type Guard } from './auth.js';
 import { errorHandler } from './error-answer.js';
-import { HttpFault } from './faults.js';
+import { FaultCounts, HttpFault } from './faults.js';
 import { JsonWriter } from './json.js';
 import { answerClientError, type Servers } from './listening.js';
 import { transformSchemas } from './openapi.js';
@@ -162,7 +162,14 @@ export async function createHttpApp(
     prefix,
     isSecure: options.isSecure ?? false,
   };
-  const context: RouteContext = { service, stream, json, tuning, entrance };
+  const context: RouteContext = {
+    service,
+    stream,
+    json,
+    tuning,
+    entrance,
+    faultCounts: new FaultCounts(),
+  };
   const { servers } = options;
 
   const app: HttpApp = fastify({
@@ -178,7 +185,7 @@ export async function createHttpApp(
   // The schemas of the answers document and type them; a test holds every answer against them.
   app.setSerializerCompiler(() => json.write);
   app.setReplySerializer((payload) => json.write(payload));
-  app.setErrorHandler(errorHandler());
+  app.setErrorHandler(errorHandler(context.faultCounts));
   app.setNotFoundHandler((request) => {
     throw new HttpFault(
       404,

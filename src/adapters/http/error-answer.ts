@@ -1,7 +1,7 @@
 import type { FastifyError, FastifyReply, FastifyRequest } from 'fastify';
 import { hasZodFastifySchemaValidationErrors } from 'fastify-type-provider-zod';
 import { withoutTokens } from './auth.js';
-import { type FaultBody, HttpFault, show } from './faults.js';
+import { type FaultBody, type FaultCounts, HttpFault, show } from './faults.js';
 import { keysOf } from './schema/questions.js';
 
 type Part = 'querystring' | 'params' | 'body' | 'headers';
@@ -97,10 +97,11 @@ const TELL_STALE_EVERY_MS = 60_000;
  * fastify's error handler. Faults of the client are not logged; ours are. A stale estimate is the
  * plant's doing: a warning without a stack.
  */
-export function errorHandler() {
+export function errorHandler(counts: FaultCounts) {
   let told_ms = Number.NEGATIVE_INFINITY;
   return function sendError(error: Error, request: FastifyRequest, reply: FastifyReply): FaultBody {
     const fault = answerOf(error, request);
+    counts.add(fault.code);
     if (fault.code === 'estimate_stale') {
       if (performance.now() - told_ms >= TELL_STALE_EVERY_MS) {
         told_ms = performance.now();

@@ -28,6 +28,19 @@ export const FAULT_CODES = [
 ] as const;
 export type FaultCode = (typeof FAULT_CODES)[number];
 
+/** How often each has been answered since the start. */
+export class FaultCounts {
+  private readonly counts = new Map<FaultCode, number>(FAULT_CODES.map((code) => [code, 0]));
+
+  add(code: FaultCode): void {
+    this.counts.set(code, (this.counts.get(code) ?? 0) + 1);
+  }
+
+  all(): [FaultCode, number][] {
+    return [...this.counts];
+  }
+}
+
 export interface FaultBody {
   error: {
     code: FaultCode;

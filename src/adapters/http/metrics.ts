@@ -1,4 +1,5 @@
 import { Counter, Gauge, Registry } from 'prom-client';
+import { FaultCounts } from './faults.js';
 import type { PlantService } from './service.js';
 
 /** A counter's name as Prometheus wants it: `mqtt.late-messages` -> `rockhour_mqtt_late_messages_total`. */
@@ -26,6 +27,7 @@ function addCounters(registry: Registry, counters: Record<string, number>): void
 export async function metricsText(
   service: PlantService,
   extra: Record<string, number>,
+  faults: FaultCounts = new FaultCounts(),
 ): Promise<{ text: string; contentType: string }> {
   const registry = new Registry();
   const gauge = (name: string, help: string, labelNames: string[] = []) =>
@@ -104,6 +106,13 @@ export async function metricsText(
   gauge('nodejs_heap_size_used_bytes', 'Heap in use').set(heapUsed);
   gauge('nodejs_external_memory_bytes', 'Memory outside the heap').set(external);
   gauge('process_uptime_seconds', 'Time since the process began').set(process.uptime());
+  const counts = (name: string, help: string, of: readonly (readonly [string, number])[]) => {
+    const counter = new Counter({ name, help, labelNames: ['code'], registers: [registry] });
+    for (const [code, value] of of) counter.inc({ code }, value);
+  };
+  const errors = 'Failures that the daemon went on from, by code';
+  counts('rockhour_errors_total', errors, Object.entries(service.errors()));
+  counts('rockhour_http_faults_total', 'Questions answered with a fault, by code', faults.all());
   addCounters(registry, { ...service.counters(), ...extra });
   const all = service.scanTimes ? Registry.merge([registry, service.scanTimes.registry]) : registry;
   return { text: await all.metrics(), contentType: registry.contentType };

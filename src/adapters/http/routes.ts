@@ -7,7 +7,7 @@ import type {
 } from 'fastify';
 import type { ZodTypeProvider } from 'fastify-type-provider-zod';
 import type { Entrance } from './auth.js';
-import { unknownUnit } from './faults.js';
+import { type FaultCounts, unknownUnit } from './faults.js';
 import type { JsonWriter } from './json.js';
 import { faultSchema } from './schema/answers.js';
 import type { PlantService, UnitNow } from './service.js';
@@ -28,6 +28,7 @@ export interface RouteContext {
   readonly json: JsonWriter;
   readonly tuning: HttpTuning;
   readonly entrance: Entrance;
+  readonly faultCounts: FaultCounts;
 }
 
 /** One group of routes, declared within the path prefix. */

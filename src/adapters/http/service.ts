@@ -16,6 +16,7 @@ import type { WatchView } from '../../core/watch/causes.js';
 import type { CycleRecord } from '../../core/watch/cycleRecord.js';
 import type { WatchEvent } from '../../core/watch/event.js';
 import type { UnitWorth } from '../../core/worth/unitWorth.js';
+import type { ErrorCode } from '../../errors.js';
 import type { ScanTimes } from './scanTimes.js';
 
 /** What became of a command about an alarm; `entry` is null where it has left the list by it. */
@@ -192,6 +193,8 @@ export interface PlantService {
   unready(): string[];
   /** Counters by name: messages in, malformed, late, repeated, ... */
   counters(): Record<string, number>;
+  /** Failures that the daemon went on from, by code. */
+  errors(): Record<ErrorCode, number>;
   /** Returns the function that ends the subscription. */
   subscribe(listener: (message: ServiceMessage) => void): () => void;
 }

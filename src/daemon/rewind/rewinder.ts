@@ -229,6 +229,7 @@ export class Rewinder {
   private notRestored({ failed }: Given, thrown: unknown): void {
     this.job = null;
     this.options.counters.add('restore_failures');
+    this.options.counters.failed(thrown);
     failed(thrown);
   }
 
@@ -282,6 +283,7 @@ export class Rewinder {
     const { id } = runner.unit;
     this.job = null;
     counters.add('rewind_failures');
+    counters.failed(thrown);
     const times = (this.failures.get(id) ?? 0) + 1;
     this.failures.set(id, times);
     const now = steady.now();

@@ -40,6 +40,7 @@ import type { WatchView } from '../../../src/core/watch/causes.js';
 import type { CycleRecord } from '../../../src/core/watch/cycleRecord.js';
 import type { WatchEvent } from '../../../src/core/watch/event.js';
 import type { UnitWorth } from '../../../src/core/worth/unitWorth.js';
+import { ERRORS, type ErrorCode } from '../../../src/errors.js';
 import { COLD, HOT, unitOf } from './scriptedDefinitions.js';
 import { scriptedOffers } from './scriptedOffers.js';
 import { scriptedSchedule } from './scriptedSchedule.js';
@@ -610,6 +611,11 @@ export class ScriptedPlant implements PlantService {
       ...{ differences: [], differences_left_out: 0, restored: { state_of: time, who } },
     };
     return { accepted: true, record, same_shape: true, reaches: true, anew: [], lost: [] };
+  }
+
+  errors(): Record<ErrorCode, number> {
+    const codes = Object.keys(ERRORS) as ErrorCode[];
+    return Object.fromEntries(codes.map((code, i) => [code, i])) as Record<ErrorCode, number>;
   }
 
   /** What it is not ready for. */

@@ -95,7 +95,11 @@ export const statusRoutes: Routes = (app, context) => {
       },
     },
     async (_request, reply) => {
-      const { text, contentType } = await metricsText(service, ownCounters(context));
+      const { text, contentType } = await metricsText(
+        service,
+        ownCounters(context),
+        context.faultCounts,
+      );
       reply.type(contentType);
       return text;
     },
