@@ -4,6 +4,7 @@ import {
   DASH,
   fixed,
   hoursText,
+  parted,
   percent,
   power,
   withSigma,
@@ -83,4 +84,14 @@ it('ends the bars at a round figure that holds the longest', () => {
 it('takes a reading for a configured power where it is within two hundredths of it', () => {
   expect([1.77, 1.8, 1.83].map((read) => isSamePower(read, 1.8))).toEqual([true, true, true]);
   expect([1.7, 1.85].map((read) => isSamePower(read, 1.8))).toEqual([false, false]);
+});
+
+describe('a message', () => {
+  it('is its first sentence and what follows, whatever points stand in it', () => {
+    const first = 'Store hot: its front is 1.62 +/- 0.1 times as wide (limit 1.5, see no. 3).';
+    const rest = 'It began after 06:00 UTC. The gas may find a channel.';
+    expect(parted(`${first} ${rest}`)).toEqual([first, rest]);
+    expect(parted(first)).toEqual([first, '']);
+    expect(parted('')).toEqual(['', '']);
+  });
 });

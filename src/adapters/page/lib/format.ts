@@ -108,3 +108,10 @@ export const QUALITY_WORDS = {
   blind: 'blind: prediction only',
   stale: 'stale: no new readings',
 } as const;
+
+/** A message's first sentence, and what follows it. */
+export function parted(message: string): [string, string] {
+  const end = /[.!?] (?=[A-Z])/.exec(message);
+  if (end === null) return [message, ''];
+  return [message.slice(0, end.index + 1), message.slice(end.index + 2)];
+}

@@ -1,5 +1,5 @@
 import { inOrder, isOpen } from './alarmOrder.js';
-import { clock, hoursText } from './format.js';
+import { clock, hoursText, parted } from './format.js';
 import type { UnitEntry } from './model.js';
 import type { Trust } from './trust.js';
 import type { Standing } from './wire.js';
@@ -105,7 +105,7 @@ function ofEvent(
   return {
     level,
     words: `${LEAD[level]}: ${nameOf(event)}${act === null ? '' : `; ${act}`}${more}`,
-    because: event.message,
+    because: parted(event.message)[0],
   };
 }
 

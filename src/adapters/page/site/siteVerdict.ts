@@ -41,7 +41,10 @@ export function siteVerdict(all: readonly UnitVerdict[]): Verdict {
     const because = known.length === 0 ? 'Nothing stands.' : `Acknowledged at ${known.join(', ')}.`;
     return {
       level: worst,
-      words: `All ${counted(all.length, 'unit')} as they should be.`,
+      words:
+        all.length === 1
+          ? 'The unit is as it should be.'
+          : `All ${counted(all.length, 'unit')} as they should be.`,
       because,
     };
   }

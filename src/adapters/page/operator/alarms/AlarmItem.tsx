@@ -1,5 +1,5 @@
 import { ALARM_STATE_WORDS, isOpen } from '../../lib/alarmOrder.js';
-import { dateClock, hoursText } from '../../lib/format.js';
+import { dateClock, hoursText, parted } from '../../lib/format.js';
 import { actWords } from '../../lib/verdict.js';
 import type { Standing } from '../../lib/wire.js';
 import { command, type HidingAction } from './commands.js';
@@ -33,6 +33,8 @@ export function AlarmItem({
   const state = event.acknowledged_by
     ? `${ALARM_STATE_WORDS[event.state]} by ${event.acknowledged_by}`
     : ALARM_STATE_WORDS[event.state];
+  // A long message would push its own buttons out of the list's room: what follows stands below them.
+  const [first, rest] = parted(event.message);
   const act = event.active ? actWords(event, now) : null;
   const resettable = event.state === 'latched_acknowledged' && !event.active;
   const named = `${event.kind.replaceAll('_', ' ')} ${event.subject} ${unitName}`;
@@ -50,12 +52,16 @@ export function AlarmItem({
           <strong>{`${event.class}, ${event.priority}`}</strong>
           {` · ${unitName} · ${event.subject}`}
         </p>
-        <p class="message">{event.message}</p>
+        <p class="message">{first}</p>
         {act !== null && <p class="act-by">{act}</p>}
         <p class="when">{`${dateClock(event.time)} · ${state}`}</p>
         <details class="why">
-          <summary data-action="ask">What to do</summary>
+          <summary data-action="ask">
+            {rest === '' ? 'What to do' : 'What was seen, what to do'}
+          </summary>
           <dl>
+            {rest !== '' && <dt>Seen</dt>}
+            {rest !== '' && <dd>{rest}</dd>}
             <dt>Do</dt>
             <dd>{event.action}</dd>
             <dt>Cause</dt>

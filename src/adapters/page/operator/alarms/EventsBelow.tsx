@@ -4,17 +4,22 @@ import { useEffect, useState } from 'preact/hooks';
 /** What is cut off by less is seen [px]. */
 const EDGE_PX = 6;
 
-/** Says how many of a list that scrolls in itself are not wholly seen below, and goes on there. */
+/**
+ * Says of a list that scrolls in itself how many stand below what is seen, or that the last one seen goes
+ * on there, and goes there.
+ */
 export function EventsBelow({ list }: { list: RefObject<HTMLElement | null> }) {
   const [below, setBelow] = useState(0);
+  const [cut, setCut] = useState(false);
   // After every drawing: the list's items come and go, and each may be opened.
   useEffect(() => {
     const element = list.current;
     if (element === null) return;
     const look = () => {
-      const edge = element.getBoundingClientRect().bottom + EDGE_PX;
-      const items = [...element.children];
-      setBelow(items.filter((item) => item.getBoundingClientRect().bottom > edge).length);
+      const edge = element.getBoundingClientRect().bottom;
+      const boxes = [...element.children].map((item) => item.getBoundingClientRect());
+      setBelow(boxes.filter(({ top }) => top > edge - EDGE_PX).length);
+      setCut(boxes.some(({ bottom }) => bottom > edge + EDGE_PX));
     };
     const watch = new ResizeObserver(look);
     for (const one of [element, ...element.children]) watch.observe(one);
@@ -25,14 +30,14 @@ export function EventsBelow({ list }: { list: RefObject<HTMLElement | null> }) {
       element.removeEventListener('scroll', look);
     };
   });
-  if (below === 0) return null;
+  if (!cut) return null;
   return (
     <button
       type="button"
       class="events-below"
       onClick={() => list.current?.scrollBy({ top: 0.8 * list.current.clientHeight })}
     >
-      {`▼ ${below} more below`}
+      {below === 0 ? '▼ goes on below' : `▼ ${below} more below`}
     </button>
   );
 }
