@@ -100,6 +100,7 @@ class RockhourDaemon implements Daemon {
   /** Who may come in, to page, API and its own broker alike. */
   private readonly access: Access;
   private readonly scanTimes = new ScanTimes();
+  private readonly notices: Notices;
   private readonly journal: Journal;
   private readonly history: History;
   private readonly questions: Questions;
@@ -131,6 +132,7 @@ class RockhourDaemon implements Daemon {
     const core = options.core ?? realCore;
     const clock = options.clock ?? wallClock;
     const notices = new Notices(log);
+    this.notices = notices;
     const { counters } = this;
     this.log = log;
     this.access = new Access(site.http.tokens);
@@ -310,6 +312,7 @@ class RockhourDaemon implements Daemon {
   private async startAll(): Promise<DaemonPlaces> {
     const { site, mqtt, journal, history, pipeline, database, housekeeping } = this;
     const { folder } = site.store;
+    this.ending.push(() => this.notices.stop());
     const lock = new FolderLock(folder);
     await this.begin(
       () => lock.start(),

@@ -54,6 +54,10 @@ async function run(options: RunOptions): Promise<void> {
   });
   // While it starts nobody looks at it yet.
   lost.catch(() => undefined);
+  const ids = site.units.map((unit) => unit.id).join(', ');
+  log.info(
+    `rockhour ${packageVersion()} starts: ${site.name}, ${ids}; store in ${site.store.folder}`,
+  );
   const reloading = new Reloading({
     log,
     lost: (thrown) => lose(thrown),
@@ -67,6 +71,7 @@ async function run(options: RunOptions): Promise<void> {
   await Promise.race([reloading.start({ source, site }), asked]);
   log.info(`${await Promise.race([asked, lost])}: stops`);
   if (!(await stopInTime(reloading))) log.warn('what did not end within 4.5 s is left behind');
+  log.info('stopped');
   // Sockets of a service that hangs would keep the process.
   process.exit();
 }

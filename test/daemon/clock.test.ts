@@ -48,7 +48,8 @@ describe('notices', () => {
     expect(lines.map(({ kind, unsaid, msg }) => [kind, unsaid, msg])).toEqual([
       ['late', undefined, 'reading 0'],
       ['malformed', undefined, expect.not.stringContaining('\u001b')],
-      ['late', 4, 'reading 6'],
+      ['late', 3, 'reading 4'],
+      ['late', undefined, 'reading 6'],
     ]);
   });
 });

@@ -39,7 +39,10 @@ export function createHttpServer(
       // Before the first client: an event between listening and subscribing would be lost.
       built.stream.start();
       try {
-        await app.listen({ host: config.host, port: config.port });
+        await app.listen({
+          ...{ host: config.host, port: config.port },
+          listenTextResolver: (address) => `page and API at ${address}`,
+        });
       } catch (cause) {
         await this.stop();
         throw cannotListen(config, cause);
