@@ -24,6 +24,11 @@ export class ChaosDaemon {
     return this.said;
   }
 
+  /** Address of page and API, once it is ready. */
+  get url(): string {
+    return / page=(\S+)/.exec(this.out)?.[1] ?? '';
+  }
+
   spawn(): void {
     const child = startRockhour(['run', '--config', this.config], this.env);
     this.child = child;

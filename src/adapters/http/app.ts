@@ -5,7 +5,12 @@ import rateLimit from '@fastify/rate-limit';
 import { fastifySSE } from '@fastify/sse';
 import fastifyStatic from '@fastify/static';
 import swagger from '@fastify/swagger';
-import fastify, { type FastifyBaseLogger, LogController } from 'fastify';
+import fastify, {
+  type FastifyBaseLogger,
+  type FastifyReply,
+  type FastifyRequest,
+  LogController,
+} from 'fastify';
 import { validatorCompiler, type ZodTypeProvider } from 'fastify-type-provider-zod';
 import { Access } from '../../access/access.js';
 import { LoginFailures } from '../../access/failures.js';
@@ -172,12 +177,18 @@ export async function createHttpApp(
   };
   const { servers } = options;
 
+  const onError = errorHandler(context.faultCounts);
   const app: HttpApp = fastify({
     loggerInstance: options.log,
     logController: new LogController({ disableRequestLogging: true }),
     bodyLimit: 16 * 1024,
     forceCloseConnections: true,
     clientErrorHandler: answerClientError,
+    // Before any route: an address that cannot be decoded.
+    frameworkErrors: (error, request, reply) => {
+      const answer = reply as unknown as FastifyReply;
+      answer.send(onError(error, request as unknown as FastifyRequest, answer));
+    },
     ...(servers === undefined ? {} : { serverFactory: servers.make }),
   }).withTypeProvider<ZodTypeProvider>();
   app.removeContentTypeParser('text/plain');
@@ -185,7 +196,7 @@ export async function createHttpApp(
   // The schemas of the answers document and type them; a test holds every answer against them.
   app.setSerializerCompiler(() => json.write);
   app.setReplySerializer((payload) => json.write(payload));
-  app.setErrorHandler(errorHandler(context.faultCounts));
+  app.setErrorHandler(onError);
   app.setNotFoundHandler((request) => {
     throw new HttpFault(
       404,

@@ -78,6 +78,11 @@ export function answerOf(error: FastifyError | Error, request: FastifyRequest): 
       expected,
     });
   }
+  if ((error as FastifyError).code === 'FST_ERR_BAD_URL') {
+    return new HttpFault(400, 'unknown_route', 'the address cannot be decoded', {
+      ...{ field: 'path', value: request.url, expected: 'UTF-8, percent-encoded' },
+    });
+  }
   if (status >= 400 && status < 500) {
     return new HttpFault(status, 'unreadable_body', error.message, {
       expected: 'a JSON body with content-type application/json',

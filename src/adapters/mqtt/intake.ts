@@ -27,6 +27,14 @@ export interface IntakeReading {
 
 export const INTAKE_COUNTS = [
   'messages',
+  /**
+   * Messages that brought readings, and those of Sparkplug that were no more than heard; each of the
+   * others is unknown_topic, malformed or wrong_length.
+   */
+  'messages_taken',
+  'messages_without_readings',
+  /** Readings found; each is then repeated, lost_without_journal, or one of `readings`. */
+  'readings_found',
   'readings',
   'repeated',
   'unknown_topic',
@@ -57,6 +65,8 @@ export interface IntakeOptions {
 const GROUP_MS = 20;
 /** Fewer than a broker's usual in-flight limit (mosquitto: 20), so that a burst never waits. */
 const GROUP_MESSAGES = 16;
+/** So many are committed at once at the most, where the broker lets more be on their way. */
+const GROUP_MOST = 2048;
 /** After a failed commit [ms]. */
 const RETRY_MS = 1000;
 /** Unwritten readings kept while the journal fails; only QoS 0 can bring more than a broker holds back. */
@@ -76,6 +86,7 @@ export class Intake {
   private unacknowledged: (() => void)[] = [];
   private unflushed = 0;
   private timer: NodeJS.Timeout | null = null;
+  private soon: NodeJS.Immediate | null = null;
   private failing = false;
   private stopped = false;
 
@@ -129,8 +140,10 @@ export class Intake {
     this.unflushed++;
     if (delivery.acknowledge) this.unacknowledged.push(delivery.acknowledge);
     const routes = this.routes.get(delivery.topic);
-    if (routes) for (const route of routes) this.takeIn(route, delivery);
-    else if (!this.takeSparkplug(delivery)) {
+    if (routes) {
+      const found = routes.reduce((sum, route) => sum + this.takeIn(route, delivery), 0);
+      if (found > 0) count('messages_taken', 1);
+    } else if (!this.takeSparkplug(delivery)) {
       count('unknown_topic', 1);
       notice('unknown_topic', `nothing is configured for topic ${delivery.topic}`);
       this.options.unwanted(delivery.topic);
@@ -159,7 +172,9 @@ export class Intake {
 
   private flushSoon(): void {
     if (this.failing) return;
-    if (this.unflushed >= GROUP_MESSAGES) this.flush();
+    if (this.unflushed >= GROUP_MOST) this.flush();
+    // With all that the socket has brought by now: a sync to the disk costs as much for one as for all.
+    else if (this.unflushed >= GROUP_MESSAGES) this.soon ??= setImmediate(() => this.flush());
     else this.timer ??= setTimeout(() => this.flush(), GROUP_MS);
   }
 
@@ -167,6 +182,8 @@ export class Intake {
   flush(): void {
     if (this.timer) clearTimeout(this.timer);
     this.timer = null;
+    if (this.soon) clearImmediate(this.soon);
+    this.soon = null;
     try {
       if (this.unwritten.length > 0) this.options.commit(this.unwritten);
     } catch (thrown) {
@@ -191,16 +208,16 @@ export class Intake {
     this.timer = null;
   }
 
-  private takeIn(route: Route, delivery: Delivery): void {
+  private takeIn(route: Route, delivery: Delivery): number {
     const arrival_ms = this.options.now();
     const text = delivery.payload.toString('utf8');
     const fault = (name: PayloadFault) => {
       this.options.count(name, 1);
       this.options.notice(name, `topic ${delivery.topic}: ${excerpt(text)}`);
     };
-    for (const reading of parsePayload(route, text, arrival_ms, fault)) {
-      this.queue(route.source.unit, reading, arrival_ms);
-    }
+    const found = parsePayload(route, text, arrival_ms, fault);
+    for (const reading of found) this.queue(route.source.unit, reading, arrival_ms);
+    return found.length;
   }
 
   /** false where it is no message of an edge node that is configured. */
@@ -208,6 +225,9 @@ export class Intake {
     const arrival_ms = this.options.now();
     const readings = this.options.sparkplug?.receive(delivery, arrival_ms) ?? null;
     this.queueAll(readings ?? [], arrival_ms);
+    if (readings !== null) {
+      this.options.count(readings.length > 0 ? 'messages_taken' : 'messages_without_readings', 1);
+    }
     return readings !== null;
   }
 
@@ -216,6 +236,7 @@ export class Intake {
   }
 
   private queue(unit: string, found: PayloadReading, arrival_ms: number): void {
+    this.options.count('readings_found', 1);
     const { time_ms, value, quality } = found;
     const reading = { unit, channel: found.channel.id, time_ms, arrival_ms, value, quality };
     if (this.unwritten.length >= MOST_UNWRITTEN) {

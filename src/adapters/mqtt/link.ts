@@ -42,6 +42,11 @@ export interface LinkOptions {
 
 /** How long the broker keeps the session of an absent rockhour [s]: a week. MQTT 5 has to be told. */
 const SESSION_EXPIRY_S = 7 * 86_400;
+/**
+ * Messages that the broker may have on their way before one is acknowledged. By MQTT 3.1.1 its own
+ * limit stands alone (mosquitto: 20), and each sync of the journal is for that many.
+ */
+export const RECEIVE_MAXIMUM = 1024;
 const RECONNECT_MS = 1000;
 const CONNECT_TIMEOUT_MS = 10_000;
 const KEEPALIVE_S = 15;
@@ -241,7 +246,14 @@ function clientOptions(options: LinkOptions): IClientOptions {
     ...tlsOptions(options),
     ...(options.username === null ? {} : { username: options.username }),
     ...(options.password === null ? {} : { password: options.password }),
-    ...(options.protocol === 5 ? { properties: { sessionExpiryInterval: SESSION_EXPIRY_S } } : {}),
+    ...(options.protocol === 5
+      ? {
+          properties: {
+            sessionExpiryInterval: SESSION_EXPIRY_S,
+            receiveMaximum: RECEIVE_MAXIMUM,
+          },
+        }
+      : {}),
     will: { ...options.will, payload: Buffer.from(options.will.payload), qos: 1, retain: true },
     keepalive: KEEPALIVE_S,
     reconnectPeriod: RECONNECT_MS,

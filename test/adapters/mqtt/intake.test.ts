@@ -62,11 +62,24 @@ describe('the intake', () => {
     expect(done.slice(1)).toEqual(['commit 3', 'ack one/a', 'ack one/bc', 'ack nowhere']);
   });
 
-  it('does not wait for the clock once a group is full', () => {
+  it('does not wait for the clock once a group is full, and takes all with it that has come', () => {
     const { done, send } = harness();
-    for (let i = 0; i < 16; i++) send('one/a', { time: i, value: i });
-    expect(done[0]).toBe('commit 16');
-    expect(done).toHaveLength(17);
+    for (let i = 0; i < 40; i++) send('one/a', { time: i, value: i });
+    expect(done).toEqual([]);
+    vi.advanceTimersByTime(0);
+    expect(done[0]).toBe('commit 40');
+    expect(done).toHaveLength(41);
+    for (let i = 0; i < 2048; i++) send('one/a', { time: 100 + i, value: i });
+    expect(done[41]).toBe('commit 2048');
+  });
+
+  it('knows copies of all that one channel can have in flight', () => {
+    const { done, send } = harness();
+    for (let round = 0; round < 2; round++) {
+      for (let i = 0; i < 1500; i++) send('one/a', { time: i, value: i });
+    }
+    vi.advanceTimersByTime(50);
+    expect(done.filter((one) => one.startsWith('commit'))).toEqual(['commit 1500']);
   });
 
   it('acknowledges nothing that is not on the disk, and everything once it is', () => {

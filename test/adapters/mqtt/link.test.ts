@@ -1,7 +1,12 @@
 import { connectAsync, type MqttClient } from 'mqtt';
 import { afterEach, describe, expect, it } from 'vitest';
 import { EmbeddedBroker } from '../../../src/adapters/mqtt/broker.js';
-import { type Delivery, type LinkOptions, MqttLink } from '../../../src/adapters/mqtt/link.js';
+import {
+  type Delivery,
+  type LinkOptions,
+  MqttLink,
+  RECEIVE_MAXIMUM,
+} from '../../../src/adapters/mqtt/link.js';
 import { freePort } from '../../support/ports.js';
 import { requireProgram } from '../../support/requirements.js';
 import { type Service, startMosquitto } from '../../support/services.js';
@@ -73,23 +78,25 @@ const upTo = (end: number) => Array.from({ length: end }, (_, i) => i);
 describe.skipIf(!mosquitto).each([4, 5] as const)(
   'the link to mosquitto, MQTT protocol %i',
   (protocol) => {
+    const inFlight = protocol === 4 ? IN_FLIGHT : RECEIVE_MAXIMUM;
+
     it('hands on all that the broker lets in flight at once, and an acknowledgement brings more', async () => {
       const { url } = await broker();
       const { came, ...rest } = startLink(url, { protocol });
       await waitFor('the subscription', () => rest.link.connected);
-      await send(await client(url), 0, 84);
-      await waitFor('all in flight', () => came.length === IN_FLIGHT);
+      await send(await client(url), 0, inFlight + 64);
+      await waitFor('all in flight', () => came.length === inFlight);
       await pause(200);
-      expect(came).toHaveLength(IN_FLIGHT);
+      expect(came).toHaveLength(inFlight);
       came[0]?.acknowledge?.();
       // mosquitto 2.0.11 sends another twenty on each PUBACK, not one.
-      await waitFor('more', () => came.length > IN_FLIGHT);
+      await waitFor('more', () => came.length > inFlight);
       let next = 1;
       await waitFor('all', () => {
         while (next < came.length) came[next++]?.acknowledge?.();
-        return came.length === 84;
+        return came.length === inFlight + 64;
       });
-      expect(texts(came)).toEqual(upTo(84));
+      expect(texts(came)).toEqual(upTo(inFlight + 64));
       expect(came.some((one) => one.duplicate)).toBe(false);
     });
 
@@ -128,11 +135,11 @@ describe.skipIf(!mosquitto).each([4, 5] as const)(
       (rest.link as unknown as { client: MqttClient }).client.stream.destroy();
       await waitFor('the same three again', () => came.length === 3);
       for (const one of stale) one.acknowledge?.();
-      await send(publisher, 3, 40);
-      await waitFor('all in flight', () => came.length === IN_FLIGHT);
+      await send(publisher, 3, inFlight + 20);
+      await waitFor('all in flight', () => came.length === inFlight);
       await pause(100);
       // Had the stale ones counted, three more would have come.
-      expect(texts(came)).toEqual(upTo(IN_FLIGHT));
+      expect(texts(came)).toEqual(upTo(inFlight));
     });
 
     it('publishes retained, and the broker its last will when it is gone without a word', async () => {
