@@ -203,6 +203,7 @@ describe.skipIf(!mosquitto)('a running daemon', () => {
     const ASKED: Readonly<Record<string, readonly string[]>> = {
       '/api/health': [''],
       '/api/live': [''],
+      '/api/ready': [''],
       '/api/login': [''],
       '/api/counters': [''],
       '/metrics': [''],
@@ -264,9 +265,10 @@ describe.skipIf(!mosquitto)('a running daemon', () => {
 
     it('describes every answer to the last key', async () => {
       const rest = operations(document).filter(([path, way]) => way === 'get' && !(path in ASKED));
-      // No JSON: asked below, and read as a stream elsewhere.
+      // No JSON: asked below, read as a stream elsewhere, and a file (test/daemon/backup).
       expect(rest.map(([path]) => path).sort()).toEqual([
         '/api/stream',
+        '/api/units/{unit}/backup',
         '/api/units/{unit}/report',
       ]);
       for (const [path, queries] of Object.entries(ASKED)) {
