@@ -8,7 +8,7 @@ import { rockhour } from '../support/cli.js';
 import { temporaryFolder } from '../support/folders.js';
 import { startInflux, startMosquitto } from '../support/services.js';
 import { waitFor } from '../support/wait.js';
-import type { MeasuredUnit } from './measuredUnits.js';
+import { type MeasuredUnit, sourceMs } from './measuredUnits.js';
 import { type InfluxRow, readInflux, readSqlite, type Stored } from './readBack.js';
 
 export const MEASUREMENTS = [
@@ -31,7 +31,7 @@ export interface ChainResult {
 
 function writeSite(units: readonly MeasuredUnit[], mqtt: string, influx: string): string {
   const path = join(temporaryFolder('chain'), 'site.yaml');
-  // The recordings begin at second 0, in 1970: nothing of them may count as old.
+  // Of months ago: nothing of the recordings may count as old.
   const long = { keep_readings_days: 36500, keep_estimates_days: 36500, thin_after_days: 36500 };
   const site = {
     name: 'Measured stores',
@@ -55,7 +55,7 @@ async function play(path: string, url: string, units: readonly MeasuredUnit[]): 
       await Promise.all(
         units.map(async ({ id, rows }) => {
           const row = rows[i];
-          if (row) await gateway.readings(id, row.time_s * 1000, row.values);
+          if (row) await gateway.readings(id, sourceMs(row.time_s), row.values);
         }),
       );
     }
@@ -78,7 +78,7 @@ async function finished(page: string, units: readonly MeasuredUnit[]): Promise<v
         'api/units',
       );
       const times = new Map(now.map(({ unit, time }) => [unit, Date.parse(time ?? '')]));
-      return units.every(({ id, end_s }) => (times.get(id) ?? 0) >= end_s * 1000);
+      return units.every(({ id, end_s }) => (times.get(id) ?? 0) >= sourceMs(end_s));
     },
     120_000,
     100,

@@ -66,6 +66,12 @@ function measuredUnit(
   return { id, block: blockOf(site, id, inletId), channels, rows, end_s };
 }
 
+/** The recordings begin at second 0; a clock in 1970 would be one without its date. */
+const BEGIN_S = Date.UTC(2026, 0, 1) / 1000;
+
+/** Source time of a second of the recordings [ms since 1970]. */
+export const sourceMs = (time_s: number) => (BEGIN_S + time_s) * 1000;
+
 const valuesAt = (points: readonly MeasuredPoint[], time_s: number) =>
   Object.fromEntries(
     points.filter((p) => p.time_s === time_s).map((p) => [channelOf(p.height_m), p.value_degC]),
@@ -116,7 +122,7 @@ export function measuredUnits(): Record<
 /** The rows as a recording for `rockhour replay`. */
 export function recordingOf({ channels, rows }: MeasuredUnit): string {
   const lines = rows.map(({ time_s, values, remark }) =>
-    [time_s, ...channels.map((id) => values[id] ?? ''), remark ?? ''].join(','),
+    [sourceMs(time_s) / 1000, ...channels.map((id) => values[id] ?? ''), remark ?? ''].join(','),
   );
   return `${[['time', ...channels, 'remark'].join(','), ...lines].join('\r\n')}\r\n`;
 }
