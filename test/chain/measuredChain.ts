@@ -98,7 +98,7 @@ async function replay(path: string, unit: MeasuredUnit, recording: string) {
   writeFileSync(file, recording);
   const out = `${file}.jsonl`;
   const args = ['--config', path, '--unit', unit.id, '--recording', file, '--out', out];
-  const { code, stderr } = await rockhour(['replay', ...args, '--hours-every', '10min']);
+  const { code, stderr } = await rockhour(['replay', ...args, '--hours-every', '1min']);
   if (code !== 0) throw new Error(stderr);
   const lines = readFileSync(out, 'utf8').trimEnd().split('\n');
   return lines.map((line) => JSON.parse(line) as Record<string, unknown>);
