@@ -66,7 +66,8 @@ export class Ground {
     let left = '';
     let changed = performance.now();
     for (;;) {
-      const now = outstanding(chaos, plant.acknowledged) ?? this.scansLeft();
+      // Scans first: one that is stored between two looks has yet to be forwarded.
+      const now = this.scansLeft() ?? outstanding(chaos, plant.acknowledged);
       if (now === null) break;
       if (now !== left) changed = performance.now();
       left = now;
