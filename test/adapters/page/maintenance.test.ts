@@ -158,10 +158,16 @@ describe.skipIf(!chromium)('the rock sheet, in a real browser', { timeout: 60_00
     const shown = async () =>
       /As it was at ([-\d]+ [:\d]+)/.exec((await heading()) ?? '')?.[1] ?? '';
     await expect.poll(async () => (await shown()) >= words(hoursAgo(22.5))).toBe(true);
-    await page.locator('.rock-player .play').click();
-    const paused = await heading();
-    await page.waitForTimeout(300);
-    expect(await heading()).toBe(paused);
+    const play = page.locator('.rock-player .play');
+    await play.click();
+    await expect.poll(() => play.getAttribute('aria-pressed')).toBe('false');
+    // The last step may still be on its way to the heading; of a player at work two would come.
+    const still = async () => {
+      const before = await heading();
+      await page.waitForTimeout(500);
+      return (await heading()) === before;
+    };
+    await expect.poll(still).toBe(true);
   });
 
   it('leaves a gap a gap: nothing is drawn where nothing was stored', async () => {
