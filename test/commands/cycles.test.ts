@@ -30,7 +30,11 @@ describe('runs for people', () => {
     expect(lines[3]).toMatch(
       /^ *2 +charge +2026-05-01T\S+Z +4\.00 +8\.00\d +0\.000 +10\.1 +70\.0 /,
     );
-    expect(lines[5]).toMatch(/^ *4 +discharge .* 62\.\d +0$/);
+    expect(lines[5]).toMatch(/^ *4 +discharge .* 62\.\d +- +- +0$/);
+    const told = { made: '2026-05-01T05:32:00Z', power_MW_el: 2 };
+    const ends = { end: '2026-05-01T08:10:29.000Z', firm_end: '2026-05-01T07:58:00.000Z' };
+    const promised = RUNS.map((one) => ({ ...one, told: { ...told, ...ends } }));
+    expect(cyclesText('u', promised).split('\n')[5]).toMatch(/ 62\.\d +08:10Z +07:58Z +0$/);
     const stores = lines.filter((line) => / (hot|cold) /.test(line));
     expect(stores).toHaveLength(8);
     expect(stores[2]).toContain(' 0.75 1.00 ');

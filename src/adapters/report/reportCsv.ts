@@ -72,7 +72,8 @@ function runs({ cycles, stores }: ReportData): Field[][] {
       const at = (share: number) => run?.widths.find((width) => width.share === share);
       return [
         ...[cycle.no, cycle.kind, cycle.from, cycle.to, hoursOf(cycle), cycle.incomplete.join(' ')],
-        ...[cycle.drawn_MWh_el, cycle.delivered_MWh_el, cycle.round_trip, id],
+        ...[cycle.drawn_MWh_el, cycle.delivered_MWh_el, cycle.round_trip],
+        ...[cycle.told?.end, cycle.told?.firm_end, id],
         ...[run?.soc_from, run?.soc_to, run?.carried_MWh_th, run?.lost_MWh_th],
         ...[0.25, 0.5, 0.75].flatMap((share) => [at(share)?.width_m, at(share)?.spread_ratio]),
         ...[run?.heat_transfer_factor, run?.heat_transfer_factor_sigma],
@@ -90,7 +91,7 @@ function runs({ cycles, stores }: ReportData): Field[][] {
 
 const HEAD = [
   ...['run', 'kind', 'from', 'to', 'hours', 'incomplete'],
-  ...['drawn_MWh_el', 'delivered_MWh_el', 'round_trip', 'store'],
+  ...['drawn_MWh_el', 'delivered_MWh_el', 'round_trip', 'told_end', 'told_firm_end', 'store'],
   ...['soc_from', 'soc_to', 'carried_MWh_th', 'lost_MWh_th'],
   ...['25', '50', '75'].flatMap((p) => [`width_at_${p}_percent_m`, `spread_ratio_at_${p}_percent`]),
   ...['heat_transfer_factor', 'heat_transfer_factor_sigma', 'flow_factors'],

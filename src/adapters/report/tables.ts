@@ -136,6 +136,7 @@ export function cycleTable({ cycles, stores }: ReportData): string {
         number(width?.width_m ?? null, 2),
       ];
     }),
+    toldOf(cycle),
     cycle.round_trip === null ? '-' : percent(cycle.round_trip),
     String(cycle.raised.length || '-'),
   ]);
@@ -146,7 +147,7 @@ export function cycleTable({ cycles, stores }: ReportData): string {
       n(`${text(id)} lost MWh th`),
       n(`${text(id)} width m`),
     ]),
-    ...[n('round trip'), n('raised')],
+    ...[t('ended, beside what was told'), n('round trip'), n('raised')],
   ];
   const left = cycles.length - shown.length;
   const notes = [
@@ -154,9 +155,22 @@ export function cycleTable({ cycles, stores }: ReportData): string {
     ...(cycles.some((c) => c.incomplete.length > 0)
       ? ['* has a gap, an unknown flow or power, or began before the record.']
       : []),
+    ...(cycles.some(({ told }) => told !== null)
+      ? [
+          'Told: at the begin of a discharge, when it would end at its power. It may also have been ended earlier by choice; after the firm time it was kept.',
+        ]
+      : []),
     'Width: where the front first passed a quarter, the middle or three quarters of the bed.',
   ];
   return `${table(heads, rows)}<p class="soft">${notes.join(' ')}</p>`;
+}
+
+/** When a discharge ended, beside what was told at its begin: `18:02; likely 18:10, firm 17:45`. */
+function toldOf({ told, to }: ReportData['cycles'][number]): string {
+  const clock = (iso: string) => minuteOf(iso).slice(-5);
+  return told === null
+    ? '-'
+    : `${clock(to)}; likely ${clock(told.end)}, firm ${clock(told.firm_end)}`;
 }
 
 export function eventTable({ events, alarms }: ReportData): string {

@@ -9,6 +9,9 @@ const percent = (value: number | null): string =>
 /** To the second. */
 const moment = (iso: string): string => `${iso.slice(0, 19)}Z`;
 
+/** Of the day, to the minute. */
+const clock = (iso: string | undefined): string => (iso ? `${iso.slice(11, 16)}Z` : DASH);
+
 const HEADER = [
   ...[
     'no',
@@ -20,6 +23,8 @@ const HEADER = [
     'charge %',
     'to %',
     'round trip %',
+    'told end',
+    'firm',
     'raised',
   ],
 ];
@@ -34,7 +39,8 @@ export function cyclesText(unit: string, cycles: readonly CycleView[]): string {
   const runs = cycles.map((run) => [
     ...[run.no, run.kind, moment(run.from), hours(run).toFixed(2)],
     ...[fixed(run.drawn_MWh_el, 3), fixed(run.delivered_MWh_el, 3)],
-    ...[percent(run.soc_from), percent(run.soc_to), percent(run.round_trip), run.raised.length],
+    ...[percent(run.soc_from), percent(run.soc_to), percent(run.round_trip)],
+    ...[clock(run.told?.end), clock(run.told?.firm_end), run.raised.length],
   ]);
   const stores = cycles.flatMap((run) =>
     Object.entries(run.stores).map(([id, store]) => [
@@ -55,7 +61,8 @@ export function cyclesText(unit: string, cycles: readonly CycleView[]): string {
     table(STORE_HEADER, stores),
     ...marked.map(({ no, incomplete }) => `Run ${no} is incomplete: ${incomplete.join(', ')}.`),
     'MWh_el at the connection point, MWh_th in the stores; widths and spread ratios at a quarter,',
-    'half and three quarters of the length, where the front passed them.',
+    'half and three quarters of the length, where the front passed them. Told end, firm: by p50 and',
+    'p90, at the begin of a discharge and at its power.',
   ].join('\n');
 }
 

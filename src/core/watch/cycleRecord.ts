@@ -52,6 +52,16 @@ export interface RoundTripOver {
   readonly soc_left: Readonly<Record<string, number>>;
 }
 
+/** When a discharge was to end, as it was told at its begin: what was promised, beside `to`. */
+export interface ToldRunEnd {
+  readonly made: string;
+  /** The power that it was told for; where the power changed for good, moved to the newest. */
+  readonly power_MW_el: number;
+  /** By p50, and by p90: not before, with 90 % probability. */
+  readonly end: string;
+  readonly firm_end: string;
+}
+
 /**
  * One charge, stand or discharge of a unit, once it is over. Records follow each other without gap or
  * overlap, but where a day brought no reading. Numbers are finite or null.
@@ -81,6 +91,8 @@ export interface CycleRecord {
   readonly stores: Readonly<Record<string, StoreRun>>;
   /** Ids of alarms and alerts raised within it. */
   readonly raised: readonly string[];
+  /** Of a discharge; null where it was too short, or the estimate no guide. */
+  readonly told: ToldRunEnd | null;
   /** Delivered over drawn since the stores were last as full, see cycle/moments.ts; of a discharge that closes one. */
   readonly round_trip: number | null;
   readonly round_trip_over: RoundTripOver | null;

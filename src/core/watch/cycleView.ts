@@ -20,13 +20,15 @@ function storeView(run: StoreRun) {
 
 /** A run as people and programs see it: temperatures in degC, everything else as in the record. */
 export function cycleView(record: CycleRecord) {
-  const { ambient_mean_K, stores, incomplete, raised, indicators, ...rest } = record;
+  const { ambient_mean_K, stores, incomplete, raised, told, indicators, ...rest } = record;
   return {
     ...rest,
     incomplete: [...incomplete],
     ambient_mean_degC: celsius(ambient_mean_K) as number,
     stores: Object.fromEntries(Object.entries(stores).map(([id, run]) => [id, storeView(run)])),
     raised: [...raised],
+    // Records kept before it was noted have none.
+    told: told ?? null,
     indicators: indicators.map((indicator) => ({ ...indicator })),
   };
 }
@@ -37,7 +39,8 @@ type Cell = number | string | null;
 const OF_UNIT = [
   ...['unit', 'no', 'kind', 'from', 'to', 'running_h', 'incomplete', 'drawn_MWh_el'],
   ...['delivered_MWh_el', 'power_most_MW_el', 'flow_mean_kg_s', 'soc_from', 'soc_to'],
-  ...['ambient_mean_degC', 'round_trip', 'round_trip_from', 'raised', 'degraded'],
+  ...['ambient_mean_degC', 'round_trip', 'round_trip_from', 'told_made'],
+  ...['told_power_MW_el', 'told_end', 'told_firm_end', 'raised', 'degraded'],
 ];
 const OF_STORE = [
   ...(['soc_from', 'soc_to', 'stored_from_MWh_th', 'stored_to_MWh_th'] as const),
@@ -70,6 +73,8 @@ export function cycleRows(runs: readonly CycleView[]): {
       ...{ power_most_MW_el: run.power_most_MW_el, flow_mean_kg_s: run.flow_mean_kg_s },
       ...{ soc_from: run.soc_from, soc_to: run.soc_to, ambient_mean_degC: run.ambient_mean_degC },
       ...{ round_trip: run.round_trip, round_trip_from: run.round_trip_over?.from ?? null },
+      ...{ told_made: run.told?.made ?? null, told_power_MW_el: run.told?.power_MW_el ?? null },
+      ...{ told_end: run.told?.end ?? null, told_firm_end: run.told?.firm_end ?? null },
       raised: run.raised.join(' ') || null,
       degraded: degradedOf(run) || null,
     };

@@ -134,7 +134,7 @@ function run(no: number, kind: Mode, from: string, to: string, width_m: number):
   return {
     ...{ unit: 'north', no, kind, from, to, incomplete: [], running_h: 7 },
     ...{ drawn_MWh_el: 14, delivered_MWh_el: 0, power_most_MW_el: 2, flow_mean_kg_s: 12 },
-    ...{ soc_from: 0.15, soc_to: 0.85, ambient_mean_K: 283, raised: [] },
+    ...{ soc_from: 0.15, soc_to: 0.85, ambient_mean_K: 283, raised: [], told: null },
     ...{ round_trip: null, round_trip_over: null, indicators: [] },
     stores: { hot: storeRun(width_m), cold: storeRun(width_m) },
   };

@@ -29,6 +29,10 @@ export function run(part: Partial<StoreRun> = {}): StoreRun {
   };
 }
 
+const toldFor = (hour: number) => ({
+  ...{ made: iso(hour + 0.1), power_MW_el: 1, end: iso(hour + 6.25), firm_end: iso(hour + 5.5) },
+});
+
 /** Runs of six hours each, one after the other: charge, stand, discharge. */
 export function cycles(count: number, part: Partial<CycleRecord> = {}): CycleRecord[] {
   return Array.from({ length: count }, (_, i): CycleRecord => {
@@ -41,6 +45,7 @@ export function cycles(count: number, part: Partial<CycleRecord> = {}): CycleRec
       ...{ power_most_MW_el: 2, flow_mean_kg_s: kind === 'stand' ? null : 20 },
       ...{ soc_from: 0.2, soc_to: 0.7, ambient_mean_K: 288, stores: { hot: run(), cold: run() } },
       raised: [],
+      told: kind === 'discharge' ? toldFor(6 * i) : null,
       round_trip: kind === 'discharge' ? 0.5 : null,
       round_trip_over: null,
       indicators: [],

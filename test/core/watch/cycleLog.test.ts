@@ -155,6 +155,33 @@ describe('what a record holds', () => {
     expect(found[2]!.stores.hot!.outlet_to_K).toBeNull();
   });
 
+  it('what was told of the end of a discharge, not what was told anew, with a flicker in between', () => {
+    const at = scans.findIndex(({ mode }) => mode === 'discharge');
+    const told = (made_ms: number, power_W: number) => ({
+      ...{ made_ms, power_W, end_ms: made_ms + 3_600_000, firm_ms: made_ms + 3_000_000 },
+    });
+    const begin = scans[at]!.time_ms + 120_000;
+    const noted = scans.map((scan, i) => {
+      // A flicker of the mode forgets the run; the next telling is another.
+      if (scan.mode !== 'discharge' || i < at + 3) return scan;
+      if (i === at + 60) return { ...scan, mode: 'stand' as const };
+      if (i > at + 60) return { ...scan, told: told(scan.time_ms, 9e6) };
+      return { ...scan, told: told(begin, i < at + 30 ? 2e6 : 1.5e6) };
+    });
+    const found = run(noted).records;
+    expect(found.map(({ kind }) => kind)).toEqual(run(scans).records.map(({ kind }) => kind));
+    const iso = (ms: number) => new Date(ms).toISOString();
+    for (const { kind, told } of found) {
+      if (kind !== 'discharge') expect(told).toBeNull();
+    }
+    expect(found.find(({ kind }) => kind === 'discharge')!.told).toEqual({
+      made: iso(begin),
+      power_MW_el: 1.5,
+      end: iso(begin + 3_600_000),
+      firm_end: iso(begin + 3_000_000),
+    });
+  });
+
   it('takes no learned heat capacity for heat that was lost', () => {
     const learned = scans.map((scan, i) => ({
       ...scan,

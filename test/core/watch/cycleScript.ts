@@ -80,6 +80,7 @@ export function script(parts: readonly Part[], options: ScriptOptions = {}): Cyc
         soc: charge,
         stores: [store('hot'), store('cold')],
         raised: [],
+        told: null,
       };
       scans.push(change ? change(scan, scans.length) : scan);
     }

@@ -128,6 +128,20 @@ describe('cycles of the finer plant', () => {
     expect(worst).toBeLessThan(3);
   });
 
+  it('what was told of the discharge at its begin, at the power that it ended with', () => {
+    const { from, to, told } = records[3]!;
+    expect(told).not.toBeNull();
+    const after_s = time_s(told!.made) - time_s(from);
+    expect(after_s).toBeGreaterThan(0);
+    expect(after_s).toBeLessThanOrEqual(4 * PERIOD_S);
+    // 1.2 MW for an hour and a half, then 1.7 MW; by the plant's meter.
+    expect(Math.abs(told!.power_MW_el / 1.7 - 1)).toBeLessThan(0.02);
+    // It was ended by the next charge, long before the store was empty; the firm time is the earlier.
+    expect(time_s(told!.end)).toBeGreaterThan(time_s(to));
+    expect(time_s(told!.firm_end)).toBeLessThan(time_s(told!.end));
+    expect(records.filter((one) => one.told !== null)).toEqual([records[3]]);
+  });
+
   it('round trip of the discharge: what it gave over what the same state of charge had cost', () => {
     const discharge = records[3]!;
     const over = discharge.round_trip_over!;

@@ -104,6 +104,15 @@ const cycleSchema = z.object({
       soc_left: z.record(z.string(), z.number()),
     })
     .nullable(),
+  told: z
+    .object({
+      made: timeSchema,
+      power_MW_el: z.number(),
+      end: timeSchema.describe('By p50'),
+      firm_end: timeSchema.describe('By p90: not before, with 90 % probability'),
+    })
+    .nullable()
+    .describe('When a discharge was to end, as told at its begin'),
   indicators: z.array(indicatorSchema),
 });
 

@@ -1,4 +1,5 @@
 import type { Mode } from '../../definitions.js';
+import type { ToldEnd } from '../runEnd.js';
 
 /** What one scan tells of a store's part in a run. */
 export interface CycleStoreScan {
@@ -49,6 +50,8 @@ export interface CycleScan {
   readonly stores: readonly CycleStoreScan[];
   /** Ids of alarms and alerts raised in this scan. */
   readonly raised: readonly string[];
+  /** What is told of the end of the discharge that runs; null where none is. */
+  readonly told: ToldEnd | null;
 }
 
 /** How runs are told apart, by `cycleRules`. */

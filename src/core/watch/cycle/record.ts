@@ -1,6 +1,7 @@
 import type { Mode } from '../../definitions.js';
-import type { CycleRecord, StoreRun, WidthAtPlace } from '../cycleRecord.js';
+import type { CycleRecord, StoreRun, ToldRunEnd, WidthAtPlace } from '../cycleRecord.js';
 import type { IndicatorView } from '../indicator.js';
+import type { ToldEnd } from '../runEnd.js';
 import type { CycleRules } from './cycleScan.js';
 import type { StoreEnd } from './ends.js';
 import type { RoundTrip } from './moments.js';
@@ -49,6 +50,7 @@ export function recordOf(rules: CycleRules, stretch: Stretch, over: RunOver): Cy
     ambient_mean_K: stretch.ambient_Ks / stretch.seconds,
     stores: Object.fromEntries(end.stores.map(({ id }, s) => [id, storeRun(stretch, mode, s)])),
     raised: stretch.raised,
+    told: mode === 'discharge' && stretch.told ? toldOf(stretch.told) : null,
     round_trip: trip?.efficiency ?? null,
     round_trip_over:
       trip === null
@@ -62,6 +64,16 @@ export function recordOf(rules: CycleRules, stretch: Stretch, over: RunOver): Cy
             ),
           },
     indicators: over.indicators,
+  };
+}
+
+function toldOf({ made_ms, power_W, end_ms, firm_ms }: ToldEnd): ToldRunEnd {
+  const time = (ms: number) => new Date(ms).toISOString();
+  return {
+    made: time(made_ms),
+    power_MW_el: power_W / 1e6,
+    end: time(end_ms),
+    firm_end: time(firm_ms),
   };
 }
 

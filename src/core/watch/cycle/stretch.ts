@@ -1,4 +1,5 @@
 import type { Mode } from '../../definitions.js';
+import type { ToldEnd } from '../runEnd.js';
 import type { CycleScan } from './cycleScan.js';
 import type { Ends } from './ends.js';
 import { type AtPlace, nearer, PLACES, passPlaces } from './places.js';
@@ -38,6 +39,8 @@ export interface Stretch {
   ambient_Ks: number;
   seconds: number;
   raised: string[];
+  /** Of the end of its discharge, as it was first told, moved to its power; states before it lack it. */
+  told?: ToldEnd;
   readonly stores: StoreSums[];
   readonly modes: Partial<Record<Mode, ModeSums>>;
 }
@@ -98,10 +101,17 @@ export function noteRaised(stretch: Stretch, raised: readonly string[]): void {
   for (const id of raised) if (!stretch.raised.includes(id)) stretch.raised.push(id);
 }
 
+/** What was told anew after an alarm is no promise of the run: the first counts, at its newest power. */
+function noteTold(stretch: Stretch, told: ToldEnd | null | undefined): void {
+  if (told && (stretch.told === undefined || stretch.told.made_ms === told.made_ms))
+    stretch.told = told;
+}
+
 /** Takes what one scan shows in itself. */
 export function addScan(stretch: Stretch, scan: CycleScan, end: Ends): void {
   stretch.end = end;
   noteRaised(stretch, scan.raised);
+  noteTold(stretch, scan.told);
   const own = modeSums(stretch, scan.mode);
   scan.stores.forEach((store, s) => {
     const sums = stretch.stores[s] as StoreSums;
@@ -125,6 +135,7 @@ export function merge(stretch: Stretch, next: Stretch): void {
   stretch.flowed ||= next.flowed;
   stretch.gap ||= next.gap;
   noteRaised(stretch, next.raised);
+  noteTold(stretch, next.told);
   stretch.stores.forEach((sums, s) => {
     const other = next.stores[s] as StoreSums;
     sums.carried_MWh += other.carried_MWh;

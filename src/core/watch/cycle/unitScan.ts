@@ -39,6 +39,7 @@ export function cycleScanOf(
       ? model.stores.map((_, s) => storeScan(model, state, s, scan, conditions, taken, estimate))
       : [],
     raised: events.filter(({ transition }) => transition === 'raised').map(({ id }) => id),
+    told: state.watch.run?.told ?? null,
   };
 }
 
