@@ -3,8 +3,6 @@ import type { Intake } from '../adapters/mqtt/intake.js';
 import type { Log } from '../log.js';
 import type { Pipeline } from './pipeline.js';
 
-/** Readings at the end of the journal that the broker may send again. */
-const REMEMBER_READINGS = 20_000;
 /** A replay at the start that is longer than this is told [journal entries]. */
 const LONG_REPLAY = 5000;
 
@@ -15,7 +13,8 @@ export async function catchUp(
   pipeline: Pipeline,
   log: Log,
 ): Promise<void> {
-  for (let seq = Math.max(0, journal.lastSeq - REMEMBER_READINGS); seq < journal.lastSeq; ) {
+  // The end of the journal may be sent again.
+  for (let seq = Math.max(0, journal.lastSeq - intake.remembered); seq < journal.lastSeq; ) {
     const entries = journal.read(seq, 1000);
     seq = entries.at(-1)?.seq ?? journal.lastSeq;
     intake.remember(entries.filter((entry) => entry.kind === 'reading'));

@@ -80,8 +80,14 @@ const EXCERPT = 120;
  * no better.
  */
 export class Intake {
+  /**
+   * Newest readings that are remembered, and how many the journal is to give back at a start: as many
+   * as messages committed together can bring. A kill between the commit and the last acknowledgement
+   * has the broker send all of these again.
+   */
+  readonly remembered: number;
   private readonly routes = new Map<string, Route[]>();
-  private readonly recent = new RecentReadings();
+  private readonly recent: RecentReadings;
   private unwritten: IntakeReading[] = [];
   private unacknowledged: (() => void)[] = [];
   private unflushed = 0;
@@ -109,6 +115,19 @@ export class Intake {
       const routes = this.routes.get(source.topic) ?? [];
       this.routes.set(source.topic, [...routes, makeRoute(source, defined)]);
     }
+    this.remembered = GROUP_MOST * this.widest();
+    this.recent = new RecentReadings(this.remembered);
+  }
+
+  /** Most readings that one message brings. */
+  private widest(): number {
+    const { units, sparkplug } = this.options;
+    const byTopic = [...this.routes.values()].map((routes) =>
+      routes.reduce((sum, { source }) => sum + source.channels.length, 0),
+    );
+    // A message of an edge node may bring every channel of a unit.
+    const byNode = sparkplug ? units.map(({ channels }) => channels.length) : [];
+    return Math.max(1, ...byTopic, ...byNode);
   }
 
   get topics(): string[] {

@@ -8,12 +8,6 @@ interface SeenReading {
 
 /** Kept of each channel at least [readings]. */
 const DEPTH = 64;
-/**
- * Of the last so many readings of all channels together none is forgotten: copies come from what a
- * broker had in flight when a connection or this process ended, what was committed but not acknowledged.
- */
-const WINDOW = 4096;
-
 interface Ring {
   times: Float64Array;
   values: Float64Array;
@@ -31,6 +25,12 @@ export class RecentReadings {
   private readonly rings = new Map<string, Ring>();
   private count = 0;
 
+  /**
+   * @param window of the last so many readings of all channels together none is forgotten: all that a
+   *   broker can have in flight when a connection or this process ends, committed but not acknowledged
+   */
+  constructor(private readonly window: number) {}
+
   /** True where this very reading is among the last of its channel; else it is remembered. */
   seen(reading: SeenReading): boolean {
     const key = `${reading.unit}\n${reading.channel}`;
@@ -46,7 +46,7 @@ export class RecentReadings {
     }
     this.count++;
     // One channel alone that brings many at once has a longer memory from then on.
-    if (this.count - ring.numbers[ring.next]! < WINDOW) grow(ring);
+    if (this.count - ring.numbers[ring.next]! < this.window) grow(ring);
     ring.times[ring.next] = reading.time_ms;
     ring.values[ring.next] = reading.value;
     ring.numbers[ring.next] = this.count;

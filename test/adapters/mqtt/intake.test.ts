@@ -23,6 +23,7 @@ function harness() {
       source('u1', 'one/a', 'a'),
       source('u1', 'one/bc', 'b', 'c'),
       source('u2', 'two/a', 'a'),
+      source('u2', 'two/abce', 'a', 'b', 'c', 'e'),
       source('u1', 'both/e', 'e'),
       source('u2', 'both/e', 'e'),
     ],
@@ -115,6 +116,24 @@ describe('the intake', () => {
       [2, 8],
     ]);
     expect(counts).toMatchObject({ messages: 4, readings: 2, repeated: 2 });
+  });
+
+  it('knows every copy of a group at its greatest, after a kill before the first acknowledgement', () => {
+    const first = harness();
+    const group = (send: ReturnType<typeof harness>['send']) => {
+      for (let i = 0; i < 2047; i++) send('two/abce', { time: 1000 * i, values: [i, -i, 0, 1] });
+    };
+    group(first.send);
+    first.intake.flush();
+    expect(first.rows).toHaveLength(4 * 2047);
+    const next = harness();
+    expect(next.intake.remembered).toBe(4 * 2048);
+    next.intake.remember(first.rows.slice(-next.intake.remembered));
+    group(next.send);
+    next.send('two/abce', { time: 1e9, values: [1, 2, 3, 4] });
+    next.intake.flush();
+    expect(next.counts).toMatchObject({ repeated: 4 * 2047, readings: 4 });
+    expect(next.rows.map(({ time_ms }) => time_ms)).toEqual([1e9, 1e9, 1e9, 1e9]);
   });
 
   it('gives a topic that several units share to each of them', () => {
