@@ -2,6 +2,9 @@ import { connectAsync, type MqttClient } from 'mqtt';
 import type { ChannelSource } from '../../config/site.js';
 import { RockhourError, reasonOf, withoutCredentials } from '../../errors.js';
 
+/** After a message that failed [ms]. */
+const RETRY_MS = 200;
+
 /** Channel id -> raw value; absent = silent, null = no value. */
 export type RawValues = Readonly<Record<string, number | string | null>>;
 
@@ -54,9 +57,20 @@ export class ReadingPublisher {
     );
   }
 
-  /** Publishes a retained message of any content. */
+  /**
+   * Publishes a retained message of any content. MQTT.js sends again by itself what was not acknowledged,
+   * but a connection that closes while it does so fails the message: then it is sent anew.
+   */
   async say(topic: string, content: object, retain = true): Promise<void> {
-    await this.client?.publishAsync(topic, JSON.stringify(content), { qos: 1, retain });
+    const text = JSON.stringify(content);
+    while (this.client) {
+      try {
+        await this.client.publishAsync(topic, text, { qos: 1, retain });
+        return;
+      } catch {
+        await new Promise((resolve) => setTimeout(resolve, RETRY_MS));
+      }
+    }
   }
 }
 
