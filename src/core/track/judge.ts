@@ -1,5 +1,6 @@
 import { clear, isBelieved, type SensorEvidence, type SensorMemory, set } from './judgeMemory.js';
 import { followMovement, movesAsRock } from './judgeMovement.js';
+import { ownFault } from './judgeOwn.js';
 import { followUsual, usualFault } from './judgeUsual.js';
 import { judgeWiring, WIRING } from './judgeWiring.js';
 
@@ -54,7 +55,8 @@ export type Judgement = 'use' | 'soften' | 'leave_out';
  * - `offset` / `drifting`: five scans in a row outside 4.5 sigma without support from the sensors
  *   beside it; drifting where the innovation grew by a third or more since the first of them, and by
  *   more than it had leapt at that first. Slow drift and an offset beyond the class are told by its
- *   usual deviation (see judgeUsual).
+ *   usual deviation (see judgeUsual), and where a front never passes by what the filter had to take for
+ *   the sensor's own (see judgeOwn).
  * - `wrong_type`: it was off, and reads what another type's table makes of the rock's temperature.
  * - `outlier`: three wild readings, each back within five scans, none more than an hour from the next.
  *
@@ -144,7 +146,7 @@ function judgeSound(memory: SensorMemory, evidence: SensorEvidence, innovation: 
   if (time_ms < memory.unsettled_ms) return 'leave_out';
   followUsual(memory, evidence);
   const supported = evidence.supported || time_ms < memory.doubt_ms;
-  const fault = supported ? null : usualFault(memory, evidence);
+  const fault = (supported ? null : usualFault(memory, evidence)) ?? ownFault(memory, evidence);
   if (fault !== null) {
     set(memory, fault.verdict, time_ms, fault.evidence, fault.off_K);
     if (fault.verdict === 'drifting') {

@@ -1,5 +1,6 @@
 import type { SensorVerdict } from '../estimate.js';
 import type { Movement } from './judgeMovement.js';
+import type { Own } from './judgeOwn.js';
 import type { Start } from './judgeStart.js';
 import type { Usual } from './judgeUsual.js';
 
@@ -51,6 +52,8 @@ export interface SensorMemory extends Movement, Usual, Start {
   /** Greatest lags of late, with and against the charge [m]: what its own share of the gas may have put into its place. */
   reachCharge_m: number;
   reachDischarge_m: number;
+  /** Time that its own states have been beyond what its class allows [s]; absent in older states. */
+  impossible_s?: number;
   /** Scans in a row that fit the gas at the top of the store, not the rock. */
   inGas: number;
   /** Scans in a row in which it and another one moved as if they were swapped, and which other. */
@@ -136,6 +139,8 @@ export interface SensorEvidence {
   readonly rockSigma_K: number;
   /** What the errors of its place and its own share of the gas make there, one sigma [K]. */
   readonly placeSigma_K: number;
+  /** Its own offset and place as learned; absent: not looked at. */
+  readonly own?: Own;
   /** Prior sigma of an offset, and of one that a group shares [K]. */
   readonly offsetSigma_K: number;
   readonly groupSigma_K: number;

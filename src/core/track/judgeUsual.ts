@@ -60,7 +60,8 @@ const MODEL_K = 0.5;
 const USUAL_SIGMAS = 4;
 const BEYOND_S = 300;
 
-const gainAt = (kelvin: number): number => (kelvin < 273.15 ? GAIN_COLD : GAIN_HOT);
+/** See GAIN_HOT; at a temperature [K]. */
+export const gainAt = (kelvin: number): number => (kelvin < 273.15 ? GAIN_COLD : GAIN_HOT);
 
 /** Learns from one scan what the sensor deviates by of late and usually [K]; nothing is learned in the front. */
 export function followUsual(memory: Usual, evidence: UsualEvidence): void {

@@ -6,6 +6,7 @@ import {
   type SensorEvidence,
   type SensorMemory,
 } from './judge.js';
+import { ownOf } from './judgeOwn.js';
 import { guessLeft } from './judgeStart.js';
 import { judgeSwaps } from './judgeSwap.js';
 import { type Candidate, innovation, type JudgeWork } from './judgeWork.js';
@@ -50,6 +51,7 @@ export function judgeAll(
         tube.estimator.position_sigma_m * c.reading.slope_K_m,
         SHARE_SIGMA * gasApart(model, memoryOf(state, c), c, drive),
       ),
+      own: ownOf(model, state, work, c),
       offsetSigma_K: tube.estimator.offset_sigma_K,
       groupSigma_K: tube.estimator.group_offset_sigma_K,
       deadband_K: model.deadbands_K[c.tube]?.[c.sensor] ?? 0,
