@@ -136,7 +136,7 @@ export function cycleTable({ cycles, stores }: ReportData): string {
         number(width?.width_m ?? null, 2),
       ];
     }),
-    toldOf(cycle),
+    ...[clockOf(cycle.told?.end), clockOf(cycle.told?.firm_end)],
     cycle.round_trip === null ? '-' : percent(cycle.round_trip),
     String(cycle.raised.length || '-'),
   ]);
@@ -147,7 +147,7 @@ export function cycleTable({ cycles, stores }: ReportData): string {
       n(`${text(id)} lost MWh th`),
       n(`${text(id)} width m`),
     ]),
-    ...[t('ended, beside what was told'), n('round trip'), n('raised')],
+    ...[n('told end'), n('firm end'), n('round trip'), n('raised')],
   ];
   const left = cycles.length - shown.length;
   const notes = [
@@ -157,7 +157,7 @@ export function cycleTable({ cycles, stores }: ReportData): string {
       : []),
     ...(cycles.some(({ told }) => told !== null)
       ? [
-          'Told: at the begin of a discharge, when it would end at its power. It may also have been ended earlier by choice; after the firm time it was kept.',
+          'Told end: when a discharge would end at its power, as told at its begin; firm: not before, with 90 % certainty. It may have been ended earlier by choice.',
         ]
       : []),
     'Width: where the front first passed a quarter, the middle or three quarters of the bed.',
@@ -165,13 +165,8 @@ export function cycleTable({ cycles, stores }: ReportData): string {
   return `${table(heads, rows)}<p class="soft">${notes.join(' ')}</p>`;
 }
 
-/** When a discharge ended, beside what was told at its begin: `18:02; likely 18:10, firm 17:45`. */
-function toldOf({ told, to }: ReportData['cycles'][number]): string {
-  const clock = (iso: string) => minuteOf(iso).slice(-5);
-  return told === null
-    ? '-'
-    : `${clock(to)}; likely ${clock(told.end)}, firm ${clock(told.firm_end)}`;
-}
+/** Of the day, to the minute. */
+const clockOf = (iso: string | undefined): string => iso?.slice(11, 16) ?? '-';
 
 export function eventTable({ events, alarms }: ReportData): string {
   const figures =

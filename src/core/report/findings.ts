@@ -1,4 +1,4 @@
-import { CAUSES } from '../watch/causeTable.js';
+import { CAUSES, PROBABLE } from '../watch/causeTable.js';
 import type { WatchEvent } from '../watch/event.js';
 import { INDICATOR_REASONS, type IndicatorReason, type IndicatorView } from '../watch/indicator.js';
 import { INDICATOR_EVENTS } from '../watch/kinds.js';
@@ -61,14 +61,22 @@ function degraded({ indicators, causes }: ReportData): Finding[] {
       .filter((c) => c !== cause && (c.subject === store || CAUSES[c.cause].of === 'unit'))
       .filter(({ probability }) => probability >= 0.1)
       .map((c) => `${CAUSES[c.cause].words} (${percent(c.probability)})`);
+    const likely = `${CAUSES[cause.cause].words} (${percent(cause.probability)})`;
+    const isProbable = cause.probability >= PROBABLE;
     found.push({
       level: 'act',
       subject: store,
-      title: `${CAUSES[cause.cause].words}, probably (${percent(cause.probability)})`,
+      title: isProbable
+        ? `${CAUSES[cause.cause].words}, probably (${percent(cause.probability)})`
+        : `${[...new Set(own.map(({ kind }) => words(kind)))].join(', ')}: no cause is probable by itself`,
       text: own.map(({ sentence }) => sentence).join(' '),
       evidence: [
-        ...cause.evidence,
-        ...(others.length > 0 ? [`Less probable: ${others.join(', ')}.`] : []),
+        ...(isProbable ? [] : [`Likeliest, of what would show here: ${likely}.`]),
+        // What the text has said already is not said twice.
+        ...cause.evidence.filter((line) => !own.some(({ sentence }) => line.includes(sentence))),
+        ...(others.length > 0
+          ? [`${isProbable ? 'Less probable' : 'Also'}: ${others.join(', ')}.`]
+          : []),
       ],
       check: cause.check,
     });

@@ -17,6 +17,9 @@ export const CAUSE_KINDS = [
 export type CauseKind = (typeof CAUSE_KINDS)[number];
 
 /** What a cause speaks of: one store, or all that the unit has. */
+/** From here on a cause is called probable: more likely than all others together. */
+export const PROBABLE = 0.5;
+
 export interface CauseNote {
   readonly of: 'store' | 'unit';
   /** How often it is the reason, among those told of here; only the order of size matters. */

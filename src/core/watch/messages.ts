@@ -2,7 +2,7 @@ import type { Mode } from '../definitions.js';
 import type { RejectedSensor, SensorVerdict } from '../estimate.js';
 import type { GasDoubt } from '../track/gasDoubts.js';
 import type { CauseView } from './causes.js';
-import { CAUSES } from './causeTable.js';
+import { CAUSES, PROBABLE } from './causeTable.js';
 import { waitingFor } from './consequences.js';
 import type { IndicatorView } from './indicator.js';
 import type { DropFault } from './operatorAlarms.js';
@@ -191,7 +191,9 @@ export function indicatorRaised(view: IndicatorView, causes: readonly CauseView[
     waiting.length === 0
       ? ''
       : ` What follows from it has no alert of its own while this one stands: ${waiting.join(', ')}.`;
-  return `${view.sentence} Probably ${CAUSES[cause.cause].words} (${sure}). On site: ${cause.check}.${follows}`;
+  const likely =
+    cause.probability >= PROBABLE ? 'Probably' : 'No cause is probable by itself; likeliest';
+  return `${view.sentence} ${likely} ${CAUSES[cause.cause].words} (${sure}). On site: ${cause.check}.${follows}`;
 }
 
 export function indicatorWithdrawn(view: IndicatorView): string {

@@ -43,6 +43,14 @@ describe('the sheet', () => {
     expect(html.match(/https?:\/\//g) ?? []).toEqual([]);
   });
 
+  it('has with each discharge what was told of its end, to the minute', () => {
+    const html = reportHtml(report({ cycles: cycles(3) }));
+    const told = cycles(3)[2]!.told!;
+    const cell = (iso: string) => `<td class="n">${iso.slice(11, 16)}</td>`;
+    expect(html).toContain(`${cell(told.end)}${cell(told.firm_end)}`);
+    expect(html.split('<td class="n">-</td><td class="n">-</td>').length).toBeGreaterThan(2);
+  });
+
   it('says what was left out where there are too many rows', () => {
     const html = reportHtml(report({ cycles: cycles(200) }));
     expect(html).toContain('80 earlier runs are left out here');

@@ -18,9 +18,23 @@ describe('findings', () => {
     const [first] = findingsOf(data);
     expect(first).toMatchObject({ level: 'act', subject: 'cold' });
     expect(first?.title).toMatch(/^dust or fines in the bed, probably/);
-    expect(first?.evidence.some((line) => line.includes(bad.sentence))).toBe(true);
+    expect(first?.text).toContain(bad.sentence);
+    // It stands in the text: the evidence has what else speaks for or against it.
+    expect(first?.evidence.some((line) => line.includes(bad.sentence))).toBe(false);
     expect(first?.check).toContain('filters');
     expect(findingsOf(data).some(({ title }) => title.startsWith('Nothing'))).toBe(false);
+  });
+
+  it('call a cause probable only where it is, else name what has changed', () => {
+    const bad = indicator({});
+    const [cause] = causesOf([bad]);
+    const unsure = { ...cause!, probability: 0.053 };
+    const [first] = findingsOf(report({ indicators: [bad], causes: [unsure] }));
+    expect(first?.title).toBe('Heat transfer: no cause is probable by itself');
+    expect(first?.title).not.toContain('probably');
+    expect(first?.evidence[0]).toBe(
+      'Likeliest, of what would show here: dust or fines in the bed (5.3 %).',
+    );
   });
 
   it('leave no degraded indicator out where no cause was named', () => {
