@@ -1,11 +1,9 @@
 import type { UnitDefinition } from './definitions.js';
-import { centralHours } from './dispatch/hours.js';
+import { fullHoursOf } from './fullHours.js';
 import { createMachine, type Machine } from './machine/machine.js';
 import { type ChannelMap, mapChannels } from './track/conditions.js';
 import { plausibleRanges } from './track/plausible.js';
-import { type StoreModel, startStore, storeModel } from './track/storeTracker.js';
-import { setTubeTemperatures, type TubeState } from './track/tube.js';
-import { resetWall } from './track/wallZone.js';
+import { type StoreModel, storeModel } from './track/storeTracker.js';
 
 /** What is built once from a unit's definition: property tables, machine, channel indices. */
 export interface UnitModel {
@@ -18,7 +16,7 @@ export interface UnitModel {
   /** Channel indices of all thermocouples. */
   readonly thermocouples: readonly number[];
   /** Hours at rated power from stores that stand at their charged reference throughout. */
-  readonly fullHours: number;
+  readonly fullHours: () => number;
 }
 
 const built = new WeakMap<UnitDefinition, UnitModel>();
@@ -58,38 +56,8 @@ export function unitModel(unit: UnitDefinition): UnitModel {
     ranges: plausibleRanges(unit),
     stores,
     thermocouples: stores.flatMap((store) => store.channels.flat()),
-    fullHours: hoursWhenFull(unit, machine, stores),
+    fullHours: fullHoursOf(unit, machine, stores),
   };
   built.set(unit, model);
   return model;
-}
-
-function hoursWhenFull(
-  unit: UnitDefinition,
-  machine: Machine,
-  models: readonly StoreModel[],
-): number {
-  const states = models.map((model) => {
-    const state = startStore(model);
-    const { kind, reference_hot_K, reference_cold_K } = model.store;
-    model.tubes.forEach((tube, k) => {
-      const full = kind === 'hot' ? reference_hot_K : reference_cold_K;
-      const profile = new Float64Array(tube.layout.cells).fill(full);
-      setTubeTemperatures(tube, state.tubes[k] as TubeState, profile);
-    });
-    if (model.wall !== null && state.wall !== null) {
-      resetWall(model.tables, state.wall, state.tubes[model.wall.tube] as TubeState);
-    }
-    return state;
-  });
-  const input = {
-    unit,
-    machine,
-    models,
-    states,
-    plenum_K: models.map(() => Number.NaN),
-    calibration: null,
-    ambient_K: unit.ambient_K,
-  };
-  return centralHours(input, unit.rated_power_W).hours;
 }

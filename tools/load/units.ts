@@ -108,7 +108,9 @@ export function say(
 ): Promise<unknown> {
   const read = channels.map((id) => {
     const value = values[id] ?? null;
-    return typeof value === 'number' && value !== 0 ? value + unit * APART : value;
+    // A mode is a word told as a number: shifted it would be none.
+    const isMeasured = typeof value === 'number' && value !== 0 && id !== 'mode';
+    return isMeasured ? value + unit * APART : value;
   });
   if (payload === 'value' && values[channels[0]!] === undefined) return Promise.resolve();
   const content = payload === 'array' ? { time, values: read } : { time, value: read[0] };

@@ -157,7 +157,7 @@ function judgedHealthy(jobs: readonly WatchJob[], { result, truth }: WatchHashes
     const truly = (stretch: string, t_h: number): number | null => {
       const recording = keptStretch(seed, stretch, truth);
       const apart = recording === null ? null : trulyApart(recording, t_h);
-      return apart === null ? null : (apart * fullHours) / unit.rated_hours;
+      return apart === null ? null : (apart * fullHours()) / unit.rated_hours;
     };
     return runs.length === 0 ? [] : [judgeHealthy(seed, new Map(runs), truly)];
   });

@@ -211,6 +211,10 @@ export function fluidByName(name: string): Fluid {
   return fluid;
 }
 
+/** Gases at the pressures asked for: stores that are alike have the same one. */
+const AT_PRESSURE = new Map<string, Fluid>();
+const MOST_PRESSURES = 64;
+
 /**
  * The same fluid with the heat capacity, enthalpy and density that a real gas has at one pressure,
  * by its second virial coefficient: for a store, whose pressure is fixed. cp stays the exact
@@ -226,5 +230,10 @@ export function fluidByName(name: string): Fluid {
 export function gasAtPressure(name: string, pressure_Pa: number): Fluid {
   requirePositive('pressure_Pa', pressure_Pa);
   const gas = GAS_NAMES.find((known) => known === name);
-  return gas ? gasOf(name, GAS_FITS[gas], pressure_Pa) : fluidByName(name);
+  if (!gas) return fluidByName(name);
+  const key = `${name} ${pressure_Pa}`;
+  const made = AT_PRESSURE.get(key) ?? gasOf(name, GAS_FITS[gas], pressure_Pa);
+  AT_PRESSURE.set(key, made);
+  if (AT_PRESSURE.size > MOST_PRESSURES) AT_PRESSURE.clear();
+  return made;
 }

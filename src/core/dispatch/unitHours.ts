@@ -11,7 +11,7 @@ import { centralHours, computeHours, type HoursInput } from './hours.js';
 import { ageMachineFactor, stepMachineFactor } from './machineFactor.js';
 import { machineSpread, partLoadFactor } from './machineSpread.js';
 
-/** A rollout for the state of charge at least this often [s]. */
+/** A rollout for the state of charge this often [s], at times of the unit's own: see `chargeDue`. */
 const CHARGE_EVERY_S = 600;
 /** A jump of a store's state of charge beyond this asks for a rollout at once. */
 const CHARGE_JUMP = 0.05;
@@ -106,13 +106,36 @@ export function stateOfCharge(
   const last = state.charge;
   const shown = last === null ? 0 : shownCharge(model, last, scan.time_ms, least, conditions);
   const jump = last === null || modeChanged || Math.abs(least - last.least) > CHARGE_JUMP;
-  if (!jump && scan.time_ms - last.time_ms < CHARGE_EVERY_S * 1000) return shown;
+  if (!jump && !chargeDue(unit.id, last.time_ms, scan.time_ms)) return shown;
   const input = hoursInput(model, state, unit.rated_power_W);
   const value = centralHours(input, unit.rated_power_W).hours / unit.rated_hours;
   const time_ms = scan.time_ms;
   const step = jump ? 0 : shown - value;
   state.charge = { value, time_ms, least, step, given: 0, seen_ms: time_ms };
   return value + step;
+}
+
+/**
+ * Whether the ten minutes of a unit are over. They begin at a time of its own, which follows from its
+ * id: many units that started or changed over together do not roll out in the same scan ever after.
+ */
+function chargeDue(id: string, last_ms: number, now_ms: number): boolean {
+  const every_ms = CHARGE_EVERY_S * 1000;
+  const phase_ms = shareOf(id) * every_ms;
+  const stroke = (time_ms: number) => Math.floor((time_ms - phase_ms) / every_ms);
+  return stroke(now_ms) !== stroke(last_ms);
+}
+
+/** A number in [0, 1) that is another for each text, spread evenly (FNV-1a, 32 bit, folded). */
+function shareOf(text: string): number {
+  let hash = 0x811c9dc5;
+  for (let i = 0; i < text.length; i++) {
+    hash = Math.imul(hash ^ text.charCodeAt(i), 0x01000193);
+  }
+  hash ^= hash >>> 15;
+  hash = Math.imul(hash, 0x2c1b3c6d);
+  hash ^= hash >>> 12;
+  return (hash >>> 0) / 2 ** 32;
 }
 
 /** What is shown between rollouts; counts what was delivered. */
@@ -135,7 +158,7 @@ function shownCharge(
     return Math.max(0, start - charge.given);
   }
   charge.seen_ms = time_ms;
-  const perCharge = model.fullHours / unit.rated_hours;
+  const perCharge = model.fullHours() / unit.rated_hours;
   return Math.max(0, start + perCharge * (least - charge.least));
 }
 
@@ -153,7 +176,7 @@ export function hoursOf(
 
 /** Before every store has started anything between nothing and all is possible: nothing is firm. */
 function unknownHours(model: UnitModel, power_W: number): DispatchAnswer {
-  const most = (model.fullHours * model.unit.rated_power_W) / power_W;
+  const most = (model.fullHours() * model.unit.rated_power_W) / power_W;
   const power_MW = power_W / 1e6;
   return {
     power_MW,

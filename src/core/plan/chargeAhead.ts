@@ -55,7 +55,7 @@ export function chargesAhead(
   marks_s: readonly number[],
 ): ChargeAhead[] {
   const { model, state } = outlook;
-  const perCharge = model.fullHours / model.unit.rated_hours;
+  const perCharge = model.fullHours() / model.unit.rated_hours;
   const knots_s = [0, ...marks_s];
   const units = rolledOut(outlook, watched.beds());
   const sigmas: ChargeSigma[] = [

@@ -82,7 +82,7 @@ export function* weighUnit(
     }
     found.push(next.value);
   }
-  return { unit: unit.id, over, full_hours: model.fullHours, rejected, stores: found };
+  return { unit: unit.id, over, full_hours: model.fullHours(), rejected, stores: found };
 }
 
 /** Places along each string at which one thermocouple more is tried over a day. */

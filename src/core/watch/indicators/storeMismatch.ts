@@ -57,7 +57,7 @@ export const STORE_MISMATCH: Indicator<StoreMismatchState> = {
     const hot = model.stores.findIndex(({ store }) => store.kind === 'hot');
     const cold = model.stores.findIndex(({ store }) => store.kind === 'cold');
     const alone = hot < 0 || cold < 0;
-    const scale = model.fullHours / unit.rated_hours;
+    const scale = model.fullHours() / unit.rated_hours;
     const { mode } = taken.conditions;
     const { charge, discharge } = state.healthy;
     const tests = [state.hot.test, state.cold.test];

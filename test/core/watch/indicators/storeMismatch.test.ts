@@ -29,7 +29,7 @@ describe('store mismatch', () => {
     for (let n = 0; n < 4; n++) view = cycle(0.2);
     expect(view).toMatchObject({ state: 'degraded', subject: 'vellmoor' });
     expect(view.sentence).toMatch(/the hot store holds .* more/);
-    const scale = new Rig(STORE_MISMATCH).model.fullHours / demo.rated_hours;
+    const scale = new Rig(STORE_MISMATCH).model.fullHours() / demo.rated_hours;
     expect(view.value!).toBeCloseTo(0.2 * scale, 1);
   });
 
