@@ -151,13 +151,37 @@ describe.skipIf(!chromium)('the sheet of who sells', { timeout: 30_000 }, () => 
     ]);
     expect(await page.locator('.preview tbody tr').count()).toBe(1);
     expect(plant.planAsked).toHaveLength(0);
-    // What only the server can tell comes back to its line, too.
+    // What is past is told at its line, by the clocks of the connection, and not asked about.
     await page.fill('textarea', '18:00 19:00 1\n2026-01-31T05:00Z, 2026-01-31T05:30Z, 1');
+    await page.click('button.main');
+    expect(await page.locator('.line-faults li').allTextContents()).toEqual([
+      '▲ Line 2: it begins at 2026-01-31 05:00, which is past',
+    ]);
+    expect(await page.locator('.preview caption').textContent()).toMatch(
+      /times of UTC, those typed with an offset or Z too$/,
+    );
+    expect(plant.planAsked).toHaveLength(0);
+    expect(opened[0]!.said).toEqual([]);
+  });
+
+  it('tells at its line what only the server knows, until the rows are others; a reload keeps them', async () => {
+    const page = await open('schedule');
+    const rows = '18:00, 20:00, 1\n2026-01-31T19:00Z, 2026-01-31T21:00Z, 1';
+    await page.fill('textarea', rows);
     await page.click('button.main');
     await page.waitForSelector('.line-faults li');
     expect(await page.locator('.line-faults li').first().textContent()).toMatch(
-      /^▲ Line 2: from is .* expected .*that time is past/,
+      /^▲ Line 2: from is .* expected .*blocks may not overlap/,
     );
+    expect(await page.locator('.fault').allTextContents()).toContain(
+      'The schedule was refused; see its rows.',
+    );
+    await page.fill('textarea', '18:00, 20:00, 1');
+    await page.waitForSelector('.line-faults li', { state: 'detached' });
+    expect((await page.locator('.fault').allTextContents()).join('')).toBe('');
+    await page.reload();
+    await page.waitForSelector('.preview tbody tr');
+    expect(await page.inputValue('textarea')).toBe('18:00, 20:00, 1');
   });
 
   it('checks a schedule, draws where it is short, and takes over the nearest that holds', async () => {

@@ -9,7 +9,13 @@ const standing = (more: Partial<Standing>): Standing => ({
   ...{ id: 'u/valve_leaks/cold', unit: 'u', kind: 'valve_leaks', subject: 'cold' },
   ...{ class: 'alert', priority: 'medium', time: TIME, value: null, limit: null },
   ...{ message: 'It leaks.', state: 'unacknowledged', active: true, acknowledged_by: null },
-  ...{ shelved: null, out_of_service: null, cause: '', consequence: '', action: '' },
+  ...{
+    shelved: null,
+    out_of_service: null,
+    cause: '',
+    consequence: '',
+    action: 'Lower the power.',
+  },
   respond_within_h: 1,
   ...more,
 });
@@ -28,7 +34,7 @@ describe('whether all is well', () => {
     expect(told).toEqual({
       level: 'urgent',
       words: 'Alarm: outlet near limit, hot · 1 more',
-      because: 'It leaks.',
+      because: 'Lower the power.',
     });
     expect(verdictOf('blind', null, [alert]).words).toBe('Blind: no readings.');
     expect(verdictOf('degraded', null, [alert]).words).toBe('Alert: valve leaks, cold');
@@ -39,6 +45,39 @@ describe('whether all is well', () => {
       words: 'Nothing new. Known: valve leaks, cold',
     });
     expect(verdictOf('live', null, []).level).toBe('well');
+  });
+
+  it('weighs the thermocouples that are not in use although nothing stands', () => {
+    const all = (count: number) => [
+      { thermocouples: Array.from({ length: count }, (_, i) => ({ id: `${i}`, position_m: i })) },
+    ];
+    const entry = (used: number, rejected: number) =>
+      ({
+        definition: { stores: ['hot', 'cold'].map((id) => ({ id, strings: all(42) })) },
+        state: {
+          estimate: {
+            time: TIME,
+            stores: {
+              hot: { sensors: { used, rejected: Array(rejected).fill({}) } },
+              cold: { sensors: { used: 42, rejected: [] } },
+            },
+          },
+        },
+      }) as unknown as Parameters<typeof verdictOf>[1];
+    expect(verdictOf('live', entry(42, 0), []).level).toBe('well');
+    // One that a single scan leaves out is no verdict, and is told.
+    expect(verdictOf('live', entry(41, 0), [])).toMatchObject({
+      level: 'well',
+      because: '83 of 84 thermocouples in use · estimate good · nothing stands',
+    });
+    expect(verdictOf('live', entry(41, 1), [])).toMatchObject({
+      level: 'known',
+      words: 'As it should be, but 1 thermocouple is left out.',
+    });
+    expect(verdictOf('live', entry(26, 16), [])).toMatchObject({
+      level: 'care',
+      because: expect.stringContaining('In use in store hot: 26 of 42.'),
+    });
   });
 
   it('says until when to act, and how long that is by the time of the estimate', () => {

@@ -23,6 +23,9 @@ export function App() {
   return loginWanted.value ? <LogIn /> : <Page />;
 }
 
+/** What lies higher than this may be under the head [px]. */
+const HEAD_PX = 80;
+
 /** The page: head and foot are the same on every sheet, so that old data never pass unnoticed. */
 function Page() {
   const { sheet, part } = route.value;
@@ -32,12 +35,15 @@ function Page() {
   const trust = trustOf(model.connection.value, entry);
   const old = isOld(trust);
 
-  // A sheet that was changed to is read from its head, a part that was meant from there.
+  // A sheet that was changed to is read from its head, a part that was meant from there: from the row of
+  // parts where there is one, which must not come to lie under the head.
   useEffect(() => {
-    const loginWanted = part === '' ? null : document.getElementById(part.split('/')[0] ?? '');
-    if (loginWanted !== null) {
-      loginWanted.scrollIntoView();
-      loginWanted.focus({ preventScroll: true });
+    const meant = part === '' ? null : document.getElementById(part.split('/')[0] ?? '');
+    if (meant !== null) {
+      const parts = main.current?.querySelector('nav') ?? null;
+      if (parts === null) meant.scrollIntoView();
+      else if (parts.getBoundingClientRect().top < HEAD_PX) parts.scrollIntoView();
+      meant.focus({ preventScroll: true });
     } else if (!first.current) {
       window.scrollTo(0, 0);
       main.current?.focus({ preventScroll: true });
@@ -61,11 +67,28 @@ function Page() {
       <div id="banner" role="alert" data-trust={trust}>
         {bannerText(trust, entry, model.lostSince_ms.value)}
       </div>
+      <NotHere />
       <main id="main" ref={main} tabIndex={-1} data-sheet={sheet} data-old={old ? '' : undefined}>
         <Shown />
       </main>
       <Foot />
     </>
+  );
+}
+
+/** The address asked for a unit that is not run here: another one is shown, and that is said. */
+function NotHere() {
+  const wanted = model.notHere.value;
+  const shown = model.unit.value;
+  if (wanted === null || shown === null) return null;
+  const leftOut = model.leftOut.value.some(({ unit }) => unit === wanted);
+  return (
+    <p id="not-here" role="status">
+      {leftOut
+        ? `The unit “${wanted}” is not run, as its configuration has faults; All units names them. `
+        : `There is no unit “${wanted}” here. `}
+      {`This is ${shown.name}.`}
+    </p>
   );
 }
 

@@ -33,6 +33,24 @@ export function power(power_MW: number): string {
 
 const two = (value: number) => String(value).padStart(2, '0');
 
+/**
+ * Which way a power goes, in a word, beside its size: what stands below zero on one sheet would stand
+ * above it on another.
+ *
+ * @param power_MW above 0 while the unit draws, as it is metered
+ */
+export const powerWay = (power_MW: number | null | undefined): string =>
+  wayOf(power_MW, 'drawn', 'delivered');
+
+/** Which way gas flows, in words. */
+export const flowWay = (flow_kg_s: number | null | undefined): string =>
+  wayOf(flow_kg_s, 'charging way', 'discharging way');
+
+function wayOf(value: number | null | undefined, above: string, below: string): string {
+  if (value === null || value === undefined || value === 0) return '';
+  return value > 0 ? above : below;
+}
+
 /** 4.95 h -> `4 h 57 min`. */
 export function hoursText(hours: number | null | undefined): string {
   if (hours === null || hours === undefined || !Number.isFinite(hours)) return DASH;

@@ -31,6 +31,8 @@ export class PageModel {
   /** Units that are not run until their configuration is mended. */
   readonly leftOut = signal<readonly LeftOut[]>([]);
   readonly selected = signal<string | null>(null);
+  /** Unit that the address asked for and that is not run here; null once another was chosen. */
+  readonly notHere = signal<string | null>(null);
   readonly standing = signal<readonly Standing[]>([]);
   /** Shelved, suppressed by design or out of service. */
   readonly heldBack = signal<readonly Standing[]>([]);

@@ -26,10 +26,18 @@ export async function reloadAlarms(): Promise<void> {
   }
 }
 
+/** Units whose definition may be another one by now: it is shown until the new one has come. */
+const doubted = new Set<string>();
+
 async function loadDefinition(unit: string): Promise<void> {
   const entry = model.units.value.find((candidate) => candidate.unit === unit);
-  if (entry === undefined || entry.definition !== null) return;
-  model.takeDefinition(unit, (await api.unit(unit)).definition);
+  if (entry === undefined || (entry.definition !== null && !doubted.has(unit))) return;
+  const { definition } = await api.unit(unit);
+  doubted.delete(unit);
+  // The same again is no news: what is drawn from it would be drawn anew.
+  if (JSON.stringify(definition) !== JSON.stringify(entry.definition)) {
+    model.takeDefinition(unit, definition);
+  }
 }
 
 async function loadUnits(): Promise<void> {
@@ -43,7 +51,7 @@ const live = new LiveConnection((profileOf, id) => api.streamUrl(profileOf, id),
     model.setConnection('live');
     // After a restart the configuration may be another one.
     if (hello.resume === 'gap') {
-      for (const { unit } of model.units.value) model.takeDefinition(unit, null);
+      for (const { unit } of model.units.value) doubted.add(unit);
     }
     void loadUnits().catch(() => undefined);
     void reloadAlarms();
@@ -70,6 +78,7 @@ effect(() => {
 
 /** Chooses the unit that all sheets show. */
 export function select(unit: string): void {
+  model.notHere.value = null;
   model.selected.value = unit;
   putUnitInAddress(unit);
   void loadDefinition(unit).catch(() => undefined);
@@ -92,6 +101,7 @@ export async function begin(): Promise<void> {
   const known = model.units.value.some((entry) => entry.unit === wanted);
   const unit = known ? wanted : model.selected.value;
   if (unit !== null) select(unit);
+  model.notHere.value = known ? null : wanted;
 }
 
 /** Ends the log-in; the page asks for a token again. */

@@ -4,12 +4,15 @@ export function roundHours(longest: number): number {
   return steps.find((step) => step >= longest) ?? Math.ceil(longest / 168) * 168;
 }
 
+/** More than any machine has, and than the server takes [MW]. */
+const GREATEST_MW = 10_000;
+
 /** A power typed by the user: `1,8` is one and eight tenths here. null where it is no power. */
 export function typedPower(text: string): number | null {
   const plain = text.trim().replace(',', '.');
   if (!/^\d+(\.\d+)?$|^\.\d+$/.test(plain)) return null;
   const value = Number(plain);
-  return value > 0 ? value : null;
+  return value > 0 && value <= GREATEST_MW ? value : null;
 }
 
 const SAME_SHARE = 0.02;

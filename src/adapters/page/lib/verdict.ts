@@ -1,5 +1,5 @@
 import { inOrder, isOpen } from './alarmOrder.js';
-import { clock, hoursText, parted } from './format.js';
+import { clock, dateClock, hoursText } from './format.js';
 import type { UnitEntry } from './model.js';
 import type { Trust } from './trust.js';
 import type { Standing } from './wire.js';
@@ -85,6 +85,8 @@ export function verdictOf(
   }
   const [known] = events;
   if (known !== undefined) return ofEvent('known', known, events, time);
+  const fewer = thinned(entry);
+  if (fewer !== null) return fewer;
   return {
     level: 'well',
     words: 'All as it should be.',
@@ -105,7 +107,46 @@ function ofEvent(
   return {
     level,
     words: `${LEAD[level]}: ${nameOf(event)}${act === null ? '' : `; ${act}`}${more}`,
-    because: parted(event.message)[0],
+    because: becauseOf(event),
+  };
+}
+
+/** What to do of an alarm; of others since when: the list below has what was seen, once. */
+function becauseOf(event: Standing): string {
+  const since = dateClock(event.time);
+  const who = event.acknowledged_by;
+  if (!event.active) return `Since ${since}, and over again; it waits for its acknowledgement.`;
+  if (!isOpen(event)) return `Since ${since}${who === null ? '' : `, acknowledged by ${who}`}.`;
+  if (event.class === 'alarm') return event.action;
+  return `Since ${since}. An alert: nothing has to be done at once.`;
+}
+
+/** A store that has lost more than this share of its thermocouples is seen less well. */
+const THIN_SHARE = 0.2;
+
+/** What of a unit's thermocouples is not in use, although nothing stands; null where that is little. */
+function thinned(entry: UnitEntry | null): Verdict | null {
+  const stores = (entry?.definition?.stores ?? []).flatMap(({ id, strings }) => {
+    const sensors = entry?.state?.estimate?.stores[id]?.sensors;
+    const all = strings.reduce((sum, string) => sum + string.thermocouples.length, 0);
+    return sensors === undefined ? [] : [{ id, all, ...sensors }];
+  });
+  const thin = stores.filter(({ all, used }) => all - used > THIN_SHARE * all);
+  if (thin.length > 0) {
+    const told = thin.map(({ id, all, used }) => `${id}: ${used} of ${all}`).join(', ');
+    return {
+      level: 'care',
+      words: 'Many thermocouples are not in use.',
+      because: `In use in store ${told}. The estimate goes on; Rock, Thermocouples says why.`,
+    };
+  }
+  const rejected = stores.reduce((sum, store) => sum + store.rejected.length, 0);
+  if (rejected === 0) return null;
+  const are = rejected === 1 ? 'thermocouple is' : 'thermocouples are';
+  return {
+    level: 'known',
+    words: `As it should be, but ${rejected} ${are} left out.`,
+    because: `${inUse(entry)} · estimate good · nothing stands`,
   };
 }
 

@@ -1,4 +1,5 @@
 import type uPlot from 'uplot';
+import { timeRange } from '../parts/chartOptions.js';
 import { inkOf } from '../parts/dark.js';
 
 /** How a line looks, and what stands at its end; lines are told apart without colour. */
@@ -12,12 +13,7 @@ export interface Line {
 
 const HEIGHT = 160;
 const LABELS_PX = 76;
-const LEAST_S = 3_600;
 const LEAST_APART_PX = 13;
-
-/** A moment alone stands amid its day; left to itself it would get an axis of years. */
-const atLeast = (from: number, to: number): [number, number] =>
-  to - from < LEAST_S ? [to - LEAST_S / 2, to + LEAST_S / 2] : [from, to];
 
 /** Options of a chart over days and weeks; `tell` hears where the cursor is, null at rest. */
 export function weekOptions(
@@ -40,7 +36,7 @@ export function weekOptions(
     padding: [8, LABELS_PX, 0, 0],
     legend: { show: false },
     cursor: { sync: { key: 'rock-weeks' }, drag: { x: false, y: false }, points: { size: 7 } },
-    scales: { x: { range: (_, from, to) => (from === null ? [null, null] : atLeast(from, to)) } },
+    scales: { x: { range: timeRange } },
     axes: [
       { ...axis, grid, ticks: grid, values: dayTicks, space: 62, size: 30 },
       { ...axis, grid, ticks: grid, size: 46, space: 24 },

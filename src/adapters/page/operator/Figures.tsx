@@ -2,28 +2,24 @@ import type { ComponentChildren } from 'preact';
 import {
   DASH,
   fixed,
+  flowWay,
   hoursText,
   LIMIT_WORDS,
   MODE_WORDS,
   percent,
   power,
+  powerWay,
   QUALITY_WORDS,
 } from '../lib/format.js';
 import type { UnitEntry } from '../lib/model.js';
+import type { Answer } from '../lib/useAnswer.js';
 import type { AskedHeadroom, AskedHours } from '../lib/wire.js';
 import { ChargeBar } from '../parts/ChargeBar.js';
 import { Unit } from '../parts/Unit.js';
 import { configuredNow, nearestToRated } from './asked.js';
 
-/** Flow and power are positive while charging: what the sign means, in words. */
-export function bySign(
-  value: number | null | undefined,
-  positive: string,
-  negative: string,
-): string {
-  if (value === null || value === undefined || value === 0) return '';
-  return value > 0 ? positive : negative;
-}
+const size = (value: number | null | undefined): number | null =>
+  value === null || value === undefined ? null : Math.abs(value);
 
 function Figure({
   field,
@@ -65,7 +61,7 @@ export function Figures({
 }: {
   entry: UnitEntry | null;
   present: AskedHours | null;
-  headroom: AskedHeadroom | null;
+  headroom: Answer<AskedHeadroom>;
 }) {
   const state = entry?.state ?? null;
   const estimate = state?.estimate ?? null;
@@ -73,8 +69,9 @@ export function Figures({
   const now = configuredNow(entry) ?? present?.answers[0] ?? null;
   const firm = now ?? nearestToRated(entry);
   const atRated = nearestToRated(entry);
-  const take = headroom?.answers[0] ?? null;
+  const take = headroom.answer?.answers[0] ?? null;
   const charge = estimate?.state_of_charge ?? null;
+  const awaited = estimate === null ? '' : 'not worked out yet';
   return (
     <section id="figures" aria-label="Figures">
       <dl class="great">
@@ -97,7 +94,7 @@ export function Figures({
           value={hoursText(firm?.hours.p90)}
           under={
             firm === null
-              ? ''
+              ? awaited
               : `p90 at ${power(firm.power_MW)} MW electric${now === null ? '' : ', as now'}`
           }
         />
@@ -106,7 +103,7 @@ export function Figures({
           label="Dispatchable, firm"
           value={fixed(atRated?.energy_MWh_el.p90, 2)}
           unit="MWh_el"
-          under={atRated === null ? '' : `p90 at ${power(atRated.power_MW)} MW electric`}
+          under={atRated === null ? awaited : `p90 at ${power(atRated.power_MW)} MW electric`}
         />
         <Figure
           field="mode"
@@ -118,23 +115,23 @@ export function Figures({
         <Figure
           field="power"
           label="Net power"
-          value={fixed(state?.power_MW_el, 2)}
+          value={fixed(size(state?.power_MW_el), 2)}
           unit="MW_el"
-          under={bySign(state?.power_MW_el, 'drawn to charge', 'delivered')}
+          under={powerWay(state?.power_MW_el)}
         />
         <Figure
           field="flow"
           label="Flow"
-          value={fixed(state?.flow_kg_s, 1)}
+          value={fixed(size(state?.flow_kg_s), 1)}
           unit="kg/s"
-          under={bySign(state?.flow_kg_s, 'charging way', 'discharging way')}
+          under={flowWay(state?.flow_kg_s)}
         />
         <Figure
           field="headroom"
           label="Can still take, firm"
           value={fixed(take?.energy_MWh_el.p90, 2)}
           unit="MWh_el"
-          under={headroomWords(take, headroom?.stale ?? false)}
+          under={headroomWords(headroom)}
         />
         <Figure
           field="quality"
@@ -147,10 +144,15 @@ export function Figures({
   );
 }
 
-function headroomWords(answer: AskedHeadroom['answers'][number] | null, stale: boolean): string {
-  if (answer === null) return '';
+/** What the figure is of; without one, whether it is on its way. */
+function headroomWords({ answer: headroom, asking, fault }: Answer<AskedHeadroom>): string {
+  const answer = headroom?.answers[0] ?? null;
+  if (answer === null || headroom === null) {
+    if (fault !== null) return 'not known: the server gave no answer';
+    return asking ? 'being worked out' : '';
+  }
   if (answer.refused !== null) return answer.refused;
   const limit = answer.limited_by === null ? '' : `, ${LIMIT_WORDS[answer.limited_by]}`;
-  const old = stale ? ', from a stale estimate' : '';
+  const old = headroom.stale ? ', from a stale estimate' : '';
   return `${hoursText(answer.hours.p90)} at ${power(answer.power_MW_el)} MW electric${limit}${old}`;
 }

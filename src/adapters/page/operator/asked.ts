@@ -66,16 +66,16 @@ export function usePresentHours(entry: UnitEntry | null): AskedHours | null {
 }
 
 /** What the unit can still take at its rated power, or at the most that it charges with. */
-export function useHeadroom(entry: UnitEntry | null): AskedHeadroom | null {
+export function useHeadroom(entry: UnitEntry | null): Answer<AskedHeadroom> {
   const definition = entry?.definition ?? null;
   const most = definition?.limits.charge.power_max_MW_el ?? 0;
   const power_MW = Math.min(definition?.rated_power_MW_el ?? 0, most);
   const basis = useSettled(basisOf(entry), HEADROOM_EVERY_MS);
   const worth = entry?.state?.dispatch != null && power_MW > 0;
   const key = useHeld(worth ? `${entry?.unit} ${power_MW} ${basis}` : null);
-  const { answer } = useAnswer(key, (signal) => {
+  const asked = useAnswer(key, (signal) => {
     const path = api.path(entry?.unit ?? '', 'headroom');
     return api.get<AskedHeadroom>(path, { power_MW, stale: 'mark' }, signal);
   });
-  return ofUnit(answer, entry);
+  return { ...asked, answer: ofUnit(asked.answer, entry) };
 }

@@ -3,6 +3,17 @@ import type uPlot from 'uplot';
 export type ChartKind = 'charge' | 'hours';
 
 const HEIGHT = 118;
+const LEAST_S = 3_600;
+
+/** Ends of a time axis [s]: a moment alone stands amid its hour; left to itself it would get years. */
+export function timeRange(
+  _chart: uPlot,
+  from: number | null,
+  to: number | null,
+): uPlot.Range.MinMax {
+  if (from === null || to === null) return [null, null];
+  return to - from < LEAST_S ? [to - LEAST_S / 2, to + LEAST_S / 2] : [from, to];
+}
 
 function ink(name: string): string {
   return getComputedStyle(document.documentElement).getPropertyValue(name).trim();
@@ -26,6 +37,7 @@ export function chartOptions(
     legend: { show: false },
     cursor: { sync: { key: 'history' }, drag: { x: false, y: false }, points: { size: 7 } },
     scales: {
+      x: { range: timeRange },
       y: {
         range: kind === 'charge' ? [0, 100] : (_u, _min, max) => [0, Math.max(1, max * 1.08)],
       },

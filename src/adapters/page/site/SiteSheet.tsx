@@ -1,4 +1,13 @@
-import { ageText, DASH, fixed, hoursText, MODE_WORDS, percent, power } from '../lib/format.js';
+import {
+  ageText,
+  DASH,
+  fixed,
+  hoursText,
+  MODE_WORDS,
+  percent,
+  power,
+  powerWay,
+} from '../lib/format.js';
 import { ageNow, type UnitEntry } from '../lib/model.js';
 import { model, select } from '../lib/page.js';
 import { hrefOf } from '../lib/route.js';
@@ -113,7 +122,8 @@ function UnitRow({ entry }: { entry: UnitEntry }) {
         {fixed(firm?.energy_MWh_el.p90, 1)}
       </td>
       <td class="number" data-cell="power">
-        {fixed(delivered, 2)}
+        {fixed(delivered === null ? null : Math.abs(delivered), 2)}
+        <small>{powerWay(delivered)}</small>
       </td>
       <td class="well" data-cell="well">
         <VerdictSign level={level} />

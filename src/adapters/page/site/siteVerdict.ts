@@ -34,7 +34,7 @@ export function siteVerdict(all: readonly UnitVerdict[]): Verdict {
   const worst = ORDER.find((level) => all.some((one) => one.level === level)) ?? 'unknown';
   if (all.length === 0) return { level: worst, words: 'No units yet.', because: '' };
   const well = all.filter(({ level }) => level === 'well' || level === 'known').length;
-  const words = `${well} of ${counted(all.length, 'unit')} as they should be.`;
+  const words = `${well} of ${counted(all.length, 'unit')} as ${well === 1 ? 'it' : 'they'} should be.`;
   const asked = ORDER.slice(0, 3).flatMap((level) => all.filter((one) => one.level === level));
   if (asked.length === 0) {
     const known = all.filter(({ level }) => level === 'known').map(({ name }) => name);
@@ -48,6 +48,8 @@ export function siteVerdict(all: readonly UnitVerdict[]): Verdict {
       because,
     };
   }
+  const [only] = asked;
+  if (all.length === 1 && only !== undefined) return only;
   const named = asked.slice(0, NAMED).map(({ name, words: what }) => `${name}: ${what}`);
   const rest = asked.length > NAMED ? [`and ${asked.length - NAMED} more`] : [];
   return { level: worst, words, because: [...named, ...rest].join(' · ') };

@@ -39,6 +39,9 @@ export function usualChargePowers({
   return [...new Set([most, ...sound])].sort((a, b) => b - a);
 }
 
+/** So many the server works out at once. */
+const MOST_POWERS = 8;
+
 /** What can still be charged, at which power, for how long; and the curve of what is possible. */
 export function ChargePart() {
   const [fault, setFault] = useState<string | null>(null);
@@ -50,7 +53,7 @@ export function ChargePart() {
   // Never by itself again: not after a fault, nor after somebody gave up.
   const fresh = asked.unit === null;
   const ask = (text: string) => {
-    const read = readPowers(text);
+    const read = readPowers(text, MOST_POWERS);
     setFault(typeof read === 'string' ? read : null);
     if (typeof read === 'string') return;
     const query = { power_MW: read.join(','), stale: 'mark' };

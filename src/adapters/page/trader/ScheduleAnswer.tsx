@@ -59,9 +59,10 @@ export function ScheduleFacts({ check, zone }: { check: ScheduleCheck; zone: str
           </Fact>
         )}
         <Fact name="Net, asked for">
-          {signedEnergy(check.planned_net_MWh_el)}
-          <Unit name="MWh_el" />, expected {signedEnergy(check.expected_net_MWh_el)}
-          <Unit name="MWh_el" /> with start-ups and standing
+          {fixed(Math.abs(check.planned_net_MWh_el), 2)}
+          <Unit name="MWh_el" /> {netWay(check.planned_net_MWh_el)}, expected{' '}
+          {fixed(Math.abs(check.expected_net_MWh_el), 2)}
+          <Unit name="MWh_el" /> {netWay(check.expected_net_MWh_el)} with start-ups and standing
         </Fact>
         {check.runs.map((run) => (
           <Fact key={run.from} name={`${MODE_NOUNS[run.mode]} ${clock(run.from)}`}>
@@ -90,7 +91,8 @@ function Fact({
   );
 }
 
-const signedEnergy = (MWh: number): string => `${MWh > 0 ? '+' : ''}${fixed(MWh, 2)}`;
+/** Above 0 the unit delivers, in a schedule. */
+const netWay = (MWh: number): string => (MWh < 0 ? 'drawn' : 'delivered');
 
 const shortWords = ({ time, MWh_el, cause }: Short, clock: (time: string) => string): string =>
   `from ${clock(time)}, ${fixed(MWh_el, 2)} MWh el to the end of the run: ${causeWords(cause)}`;

@@ -14,8 +14,10 @@ import {
 import { SchedulePicture } from './SchedulePicture.js';
 import { Scrolled } from './Scrolled.js';
 import { Awaited, StandsOn } from './Standing.js';
+import { beyondLimits, inZone } from './scheduleLimits.js';
 import {
   askedLines,
+  askedText,
   checkSchedule,
   scheduleAsking,
   scheduleCertainty,
@@ -23,10 +25,10 @@ import {
 } from './scheduleState.js';
 import {
   asText,
+  hasOffset,
   hoursOf,
   type LineFault,
   readSchedule,
-  show,
   type TypedSchedule,
 } from './scheduleText.js';
 import { csvOf, Take, tabsOf } from './Take.js';
@@ -47,8 +49,17 @@ export function SchedulePart() {
   const now_ms = sourceNow(entry, 0) ?? Date.now();
   const here = wallOf(zone, now_ms);
   const text = scheduleText.value;
-  const typed = readSchedule(text, here.date, here.clock);
-  const asked = scheduleAsking.of(unit);
+  const read = readSchedule(text, here.date, here.clock);
+  const estimate_ms = Date.parse(entry.state?.estimate?.time ?? '') || now_ms;
+  const faults = [...read.faults, ...beyondLimits(read.blocks, zone, now_ms, estimate_ms)];
+  const typed = { blocks: read.blocks, faults };
+  const told = scheduleAsking.of(unit);
+  // What was refused is no word on rows that are read anew.
+  const refused = told.faults.length > 0 && askedText.value === text;
+  const asked =
+    told.faults.length === 0
+      ? told
+      : { ...told, fault: refused ? 'The schedule was refused; see its rows.' : null };
   const { answer: check } = asked;
   const checkNow = () => {
     setTried(true);
@@ -72,7 +83,7 @@ export function SchedulePart() {
           }}
         >
           <label class="field wide">
-            <span>Blocks, one a row: from, to, MW (above 0 gives, below 0 takes)</span>
+            <span>Blocks, one a row: from, to, MW (above 0 delivers, below 0 draws)</span>
             <textarea
               name="schedule"
               rows={6}
@@ -118,17 +129,14 @@ export function SchedulePart() {
         </form>
         <Preview
           typed={typed}
-          faults={[...typed.faults, ...serverFaults(asked.faults)]}
+          faults={[...typed.faults, ...(refused ? serverFaults(told.faults) : [])]}
+          zone={zone}
           tried={tried}
           empty={text.trim() === ''}
         />
       </div>
       <Awaited
-        asked={
-          asked.faults.length > 0
-            ? { ...asked, fault: 'The schedule was refused; see its rows.' }
-            : asked
-        }
+        asked={asked}
         usual="1 to 5 s, longer for many blocks"
         onCancel={() => scheduleAsking.cancel()}
       />
@@ -185,16 +193,19 @@ function serverFaults(faults: readonly AnswerFault[]): LineFault[] {
 /** The rows as they were understood, and what was not. */
 function Preview({
   typed,
+  zone,
   faults,
   tried,
   empty,
 }: {
   typed: TypedSchedule;
+  zone: string | null;
   faults: readonly LineFault[];
   tried: boolean;
   empty: boolean;
 }) {
   const { blocks } = typed;
+  const converted = blocks.some(({ from, to }) => hasOffset(from) || hasOffset(to));
   return (
     <div class="preview">
       <ul id="schedule-faults" class="line-faults" aria-live="polite">
@@ -213,7 +224,9 @@ function Preview({
         <Scrolled label="Blocks as they are read">
           <table class="plain tight">
             <caption>
-              As it is read: {blocks.length} {blocks.length === 1 ? 'block' : 'blocks'}
+              As it is read: {blocks.length} {blocks.length === 1 ? 'block' : 'blocks'}; times of{' '}
+              {zoneWords(zone)}
+              {converted && ', those typed with an offset or Z too'}
             </caption>
             <thead>
               <tr>
@@ -233,8 +246,8 @@ function Preview({
                 return (
                   <tr key={block.line}>
                     <td>{block.line}</td>
-                    <td>{show(block.from)}</td>
-                    <td>{show(block.to)}</td>
+                    <td>{inZone(zone, block.from)}</td>
+                    <td>{inZone(zone, block.to)}</td>
                     <td>{MODE_WORDS[block.mode]}</td>
                     <td>{power(block.power_MW_el)}</td>
                     <td>{hours === null ? '–' : fixed(hours * block.power_MW_el, 2)}</td>

@@ -48,7 +48,7 @@ function Drawing({
   const upPower: [number, string][] = [];
   for (let at = Math.ceil(least / step) * step; at <= most + 1e-9; at += step) {
     const mark = Number(at.toPrecision(12));
-    upPower.push([mark, mark < 0 ? `−${-mark}` : `${mark}`]);
+    upPower.push([mark, `${Math.abs(mark)}`]);
   }
   const charge = check.charge.map((point) => ({
     at: Date.parse(point.time),
@@ -74,7 +74,7 @@ function Drawing({
         y={power}
         across={[]}
         up={upPower}
-        upName="MW el, given above, taken below"
+        upName="MW el, delivered above, drawn below"
       />
       <Axes
         frame={{ ...frame, top: POWER_BOTTOM + 44 }}

@@ -1,11 +1,29 @@
-import { signal } from '@preact/signals';
+import { effect, signal } from '@preact/signals';
 import { api } from '../lib/page.js';
 import { Asking } from './asking.js';
 import type { TypedBlock } from './scheduleText.js';
 import type { ScheduleCheck } from './wire.js';
 
-/** What stands in the field; it stays while other parts are looked at. */
-export const scheduleText = signal('');
+const KEPT_AS = 'rockhour.schedule';
+
+function kept(): string {
+  try {
+    return sessionStorage.getItem(KEPT_AS) ?? '';
+  } catch {
+    // Storage may be forbidden; a reload then empties the field.
+    return '';
+  }
+}
+
+/** What stands in the field; it stays while other parts are looked at, and over a reload. */
+export const scheduleText = signal(kept());
+effect(() => {
+  try {
+    sessionStorage.setItem(KEPT_AS, scheduleText.value);
+  } catch {
+    // As above.
+  }
+});
 export const scheduleCertainty = signal(0.9);
 
 /** An answer, with the text and the rows that it is of. */
@@ -16,6 +34,8 @@ export interface Checked extends ScheduleCheck {
 export const scheduleAsking = new Asking<Checked>();
 /** Lines of the rows that were last asked about, for faults of the server. */
 export const askedLines = signal<readonly number[]>([]);
+/** The text that was last asked about: a refusal is of that one alone. */
+export const askedText = signal('');
 
 /** Holds a schedule against the unit. Local times are the connection's; without one, UTC. */
 export function checkSchedule(
@@ -23,6 +43,7 @@ export function checkSchedule(
   blocks: readonly TypedBlock[],
   text: string,
 ): void {
+  askedText.value = text;
   askedLines.value = blocks.map(({ line }) => line);
   const body = {
     blocks: blocks.map(({ mode, power_MW_el, from, to }) => ({ mode, power_MW_el, from, to })),

@@ -44,6 +44,9 @@ const HEADS: Readonly<Record<string, string>> = {
   mw: 'power',
   mw_el: 'power',
 };
+/** Whether a time was typed with Z or an offset, and so is an instant without a zone. */
+export const hasOffset = (time: string): boolean => /(Z|[+-]\d\d:?\d\d)$/i.test(time.slice(16));
+
 type Column = 'from' | 'to' | 'mode' | 'power';
 
 const TIME_HELP = 'such as 2026-01-31 18:00, 31.01.2026 18:00 or 18:00';
@@ -85,7 +88,7 @@ export function readSchedule(text: string, today: string, now: string): TypedSch
     if ('words' in read) faults.push({ line, words: read.words });
     else {
       blocks.push({ line, ...read });
-      if (!/(Z|[+-]\d\d:?\d\d)$/i.test(read.to)) last = read.to;
+      if (!hasOffset(read.to)) last = read.to;
     }
   }
   if (faults.length === 0) faults.push(...overlaps(blocks));
@@ -154,7 +157,7 @@ function rowOf(
     return { words: `a ${mode} has no power below 0; the mode tells the direction` };
   }
   if (meant === 'stand' && signed !== 0) return { words: 'a stand has no power; 0 or nothing' };
-  const local = ![from, to].some((time) => /(Z|[+-]\d\d:?\d\d)$/i.test(time));
+  const local = ![from, to].some(hasOffset);
   if (local && to <= from) return { words: `it ends at ${show(to)}, not after it begins` };
   return { mode: meant, power_MW_el: Math.abs(signed), from, to };
 }
@@ -196,7 +199,7 @@ function timeOf(text: string, last: string): string | null {
   const iso = TIMED.exec(text);
   if (iso !== null) {
     const [, year, month, day, hour, minute, second, offset] = iso;
-    return whole(year!, month!, day!, hour!, minute!, second, offset?.toUpperCase());
+    return whole(year!, month!, day!, hour!, minute!, second, offsetOf(offset));
   }
   const dayFirst = DAY_FIRST.exec(text);
   if (dayFirst !== null) {
@@ -213,6 +216,10 @@ function timeOf(text: string, last: string): string | null {
   const next = new Date(Date.UTC(Number(year), Number(month) - 1, Number(day) + 1));
   return `${next.toISOString().slice(0, 10)}${same.slice(10)}`;
 }
+
+/** `+0100` and `+01:00` are the same. */
+const offsetOf = (offset = ''): string =>
+  offset.toUpperCase().replace(/^([+-]\d\d)(\d\d)$/, '$1:$2');
 
 /** 24:00 is the beginning of the next day, as timetables write it. */
 function whole(
@@ -240,7 +247,7 @@ export const show = (time: string): string => time.replace('T', ' ');
 
 /** Local blocks that lie over each other; times with offsets are left to the server. */
 function overlaps(blocks: readonly TypedBlock[]): LineFault[] {
-  const local = blocks.filter(({ from, to }) => from.length <= 19 && to.length <= 19);
+  const local = blocks.filter(({ from, to }) => !hasOffset(from) && !hasOffset(to));
   const ordered = [...local].sort((a, b) => a.from.localeCompare(b.from));
   return ordered.slice(1).flatMap((block, i) => {
     const before = ordered[i]!;
@@ -252,8 +259,7 @@ function overlaps(blocks: readonly TypedBlock[]): LineFault[] {
 
 /** Hours between two local times, or two with offsets; null where that cannot be said here. */
 export function hoursOf({ from, to }: Pick<TypedBlock, 'from' | 'to'>): number | null {
-  const offset = /(Z|[+-]\d\d:?\d\d)$/i;
-  const known = [from, to].filter((time) => offset.test(time.slice(16))).length;
+  const known = [from, to].filter(hasOffset).length;
   if (known === 1) return null;
   const ms = (time: string) => Date.parse(known === 2 ? time : `${time}Z`);
   return (ms(to) - ms(from)) / 3_600_000;

@@ -35,6 +35,8 @@ export const certainty = signal(0.9);
 
 const SHARES = [1, 0.8, 0.6, 0.4];
 const ALIKE = 0.12;
+/** What the server takes of powers times starts. */
+const MOST_OFFERS = 48;
 
 /** Powers worth a look: those configured, the rated one and parts of it that differ from them. */
 export function usualPowers(definition: UnitDefinition): number[] {
@@ -50,7 +52,7 @@ export function usualPowers(definition: UnitDefinition): number[] {
 export const powersText = (powers: readonly number[]): string => powers.join(' ');
 
 /** Powers in MW between blanks or semicolons, decimal point or comma; or what is wrong, in words. */
-export function readPowers(text: string): number[] | string {
+export function readPowers(text: string, most = MOST_OFFERS): number[] | string {
   const words = text
     .split(/[;\s]+/)
     .map((word) => word.replace(/,$/, ''))
@@ -63,7 +65,8 @@ export function readPowers(text: string): number[] | string {
   if (wrong !== undefined) {
     return `Powers: “${wrong}” is no power in MW; such as 1.8 1.2, with blanks between them`;
   }
-  return [...new Set(powers)].sort((a, b) => b - a);
+  const different = [...new Set(powers)].sort((a, b) => b - a);
+  return different.length <= most ? different : `Powers: ${most} at most`;
 }
 
 function numberOf(text: string): number {
@@ -79,6 +82,9 @@ export function bodyOf(own: TableForm, definition: UnitDefinition): object | str
   if (!(closes >= 0)) return 'Earliest start: minutes from now, 0 or more';
   const count = numberOf(own.count);
   if (!Number.isInteger(count) || count < 1) return 'Starts: a whole number, 1 or more';
+  if (powers.length * count > MOST_OFFERS) {
+    return `Starts: ${powers.length} powers from ${count} starts; ${MOST_OFFERS} offers can be asked for at once`;
+  }
   const priced = [own.shortfall, own.surplus].map(numberOf);
   const some = [own.shortfall, own.surplus].some((text) => text.trim() !== '');
   if (some && !priced.every((price) => price > 0)) {

@@ -3,11 +3,12 @@ import { inOrder, isOpen } from '../../lib/alarmOrder.js';
 import { clock } from '../../lib/format.js';
 import { model } from '../../lib/page.js';
 import { AlarmItem } from './AlarmItem.js';
-import { commandFault, type HidingAction } from './commands.js';
+import { commandFault, type HidingAction, nameless } from './commands.js';
 import { EventsBelow } from './EventsBelow.js';
 import { HeldBack } from './HeldBack.js';
 import { HideDialog } from './HideDialog.js';
 import { useFocusKept } from './useFocusKept.js';
+import { WhoDialog } from './WhoDialog.js';
 import { who } from './who.js';
 
 /** A storm is spoken of for so long after its last event [ms]. */
@@ -27,6 +28,8 @@ export function Alarms() {
   const held = model.heldBack.value;
   const open = events.filter(isOpen).length;
   const hidden = hiding === null ? null : (events.find(({ id }) => id === hiding.id) ?? null);
+  const named = nameless.value;
+  const asked = named === null ? undefined : [...events, ...held].find(({ id }) => id === named.id);
   return (
     <section id="alarms" ref={root} aria-labelledby="alarms-head" tabIndex={-1}>
       <h2 id="alarms-head">Alarms and alerts</h2>
@@ -71,6 +74,14 @@ export function Alarms() {
             }}
           />
         </p>
+      )}
+      {named !== null && asked !== undefined && (
+        <WhoDialog
+          key={`${named.action} ${named.id}`}
+          action={named.action}
+          event={asked}
+          unitName={nameOf(asked.unit)}
+        />
       )}
       {hiding !== null && hidden !== null && (
         <HideDialog

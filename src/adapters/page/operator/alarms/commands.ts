@@ -39,14 +39,13 @@ export async function send(
   return fault;
 }
 
-/** A command that asks for a name only; without one it says so and goes to its field. */
+/** A command that waits for the name of whoever gives it; null: none does. */
+export const nameless = signal<{ readonly action: Action; readonly id: string } | null>(null);
+
+/** A command that needs a name only; without one it is asked for where the command was given. */
 export async function command(action: Action, id: string): Promise<void> {
   if (who.value.trim() === '' && ownName() === null) {
-    commandFault.value =
-      action === 'acknowledge'
-        ? 'Say first who acknowledges: a name is recorded with it.'
-        : 'Say first who does so: a name is recorded with it.';
-    document.getElementById('who')?.focus();
+    nameless.value = { action, id };
     return;
   }
   commandFault.value = (await send(action, { id })) ?? '';
