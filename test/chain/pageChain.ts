@@ -56,6 +56,40 @@ export async function axeFinds(
   );
 }
 
+/**
+ * What comes to lie over the head, or under it where the sheet begins, while the page is scrolled
+ * through: a line for each place.
+ */
+export const headOverlaps = (page: Page): Promise<string[]> =>
+  page.evaluate(() => {
+    const head = ['.top', '.watchline']
+      .map((one) => document.querySelector<HTMLElement>(one)!)
+      .find((one) => getComputedStyle(one).position === 'sticky')!;
+    const found = new Set<string>();
+    const end = document.documentElement.scrollHeight - innerHeight;
+    scrollTo(0, 0);
+    if (
+      document.querySelector('main')!.getBoundingClientRect().top <
+      head.getBoundingClientRect().bottom
+    )
+      found.add('the sheet begins under the head');
+    for (let at = 0; ; at += innerHeight / 4) {
+      scrollTo(0, Math.min(at, end));
+      const { left, right, top, bottom } = head.getBoundingClientRect();
+      if (top > innerHeight) found.add('the head is out of sight');
+      for (const share of [0.02, 0.2, 0.4, 0.6, 0.8, 0.98])
+        for (const height of [0.2, 0.8]) {
+          const x = left + share * (right - left);
+          const over = document.elementFromPoint(x, top + height * (bottom - top));
+          if (over !== null && !head.contains(over))
+            found.add(`over the head: ${over.outerHTML.slice(0, 80)}`);
+        }
+      if (at >= end) break;
+    }
+    scrollTo(0, 0);
+    return [...found];
+  });
+
 /** How many pixels the page is wider than its window. */
 export const tooWide = (page: Page): Promise<number> =>
   page.evaluate(() => document.documentElement.scrollWidth - innerWidth);

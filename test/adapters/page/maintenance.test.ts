@@ -170,6 +170,40 @@ describe.skipIf(!chromium)('the rock sheet, in a real browser', { timeout: 60_00
     await expect.poll(still).toBe(true);
   });
 
+  it('keeps the moment that is played back over a restart of the daemon', async () => {
+    const { page } = await open('playback');
+    const port = Number(new URL(served.url).port);
+    await slider(page).focus();
+    await page.keyboard.press('Home');
+    await page.keyboard.press('ArrowRight');
+    await page.waitForURL(/#rock\/playback\/20/);
+    const shown = await page.locator('.rock-past h2').textContent();
+    await page.locator('.rock-player').evaluate((one) => one.setAttribute('data-same', ''));
+    await served.server.stop();
+    await page.waitForSelector('#freshness[data-trust="lost"]');
+    const asked = page.waitForResponse((one) =>
+      /api\/units\/[^/]+$/.test(new URL(one.url()).pathname),
+    );
+    served = await serve(plant, folder, { port });
+    await page.waitForSelector('#freshness[data-trust="live"]', { timeout: 15_000 });
+    await asked;
+    expect(await page.locator('.rock-past h2').textContent()).toBe(shown);
+    expect(await page.locator('.rock-player[data-same]').count()).toBe(1);
+  });
+
+  it('keeps the row of parts in sight of who changes the part from further down', async () => {
+    const { page } = await open('indicators');
+    await page.waitForSelector('.rock-row');
+    await page.evaluate(() => scrollTo(0, document.documentElement.scrollHeight));
+    await page.evaluate(() => {
+      location.hash = '#rock/thermocouples';
+    });
+    await page.waitForSelector('[data-sensor]');
+    const box = async (selector: string) => (await page.locator(selector).boundingBox())!;
+    const head = await box('.top');
+    expect((await box('.rock-parts')).y).toBeGreaterThanOrEqual(head.y + head.height);
+  });
+
   it('leaves a gap a gap: nothing is drawn where nothing was stored', async () => {
     const { page } = await open('playback/2026-01-30T02:00:00Z');
     expect(hoursAgo(28)).toBe('2026-01-30T02:00:00.000Z');

@@ -478,7 +478,7 @@ describe.skipIf(!chromium)('the page, in a real browser', { timeout: 30_000 }, (
       await page.keyboard.press('Enter');
       await expect
         .poll(() => page.locator('#power-fault').textContent(), SLOWLY)
-        .toBe(`A power in MW is a number above 0, as in 1.8; "${wrong}" is not.`);
+        .toBe(`A power in MW is a number above 0 and below 10000, as in 1.8; "${wrong}" is not.`);
     }
     expect(await page.locator('#power').getAttribute('aria-invalid')).toBe('true');
     expect(await page.locator('.asked li').count()).toBe(0);
@@ -585,6 +585,12 @@ describe.skipIf(!chromium)('the page, in a real browser', { timeout: 30_000 }, (
     const box = async (selector: string) => (await page.locator(selector).boundingBox())!;
     expect((await box('.top')).height).toBeLessThan(60);
     expect(await page.locator('#units button').count()).toBe(2);
+    plant.stale = true;
+    plant.age_s = 840;
+    plant.step();
+    await page.waitForSelector('#freshness[data-trust="stale"]');
+    await page.waitForSelector('#units select');
+    expect((await box('.top')).height).toBeLessThan(60);
     await page.setViewportSize({ width: 390, height: 844 });
     await page.evaluate(() => window.scrollTo(0, 900));
     await expect.poll(async () => (await box('#sheets')).y, SLOWLY).toBeLessThan(-100);

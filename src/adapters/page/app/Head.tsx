@@ -61,7 +61,10 @@ const LETTER_REM = 0.55;
 function haveButtons(units: readonly UnitEntry[], site: string): boolean {
   const { width, rem } = viewport.value;
   if (width < NARROW_PX) return units.length <= NARROW_MOST;
-  const letters = units.reduce((sum, { name }) => sum + name.length, site.length);
+  const letters = units.reduce(
+    (sum, entry) => sum + entry.name.length + notesOf(entry).length,
+    site.length,
+  );
   const needed_rem = HEAD_REM + BUTTON_REM * units.length + LETTER_REM * letters;
   return units.length <= BUTTONS_MOST && needed_rem * rem <= width;
 }

@@ -1,11 +1,11 @@
 import type { ComponentChildren } from 'preact';
+import { Wide } from '../parts/Wide.js';
 
-/** What may be wider than its place and then scrolls in itself, by the keyboard too. */
+/** A table or picture that may be wider than its place. */
 export function Scroller({ label, children }: { label: string; children: ComponentChildren }) {
   return (
-    // biome-ignore lint/a11y/noNoninteractiveTabindex: a region that scrolls has to take the keyboard
-    <section class="rock-scroll" aria-label={label} tabIndex={0}>
+    <Wide label={label} name="rock-scroll">
       {children}
-    </section>
+    </Wide>
   );
 }

@@ -104,7 +104,7 @@ export function HistoryCharts({ entry }: { entry: UnitEntry }) {
 }
 
 const hoursTitle = (power_MW: number) =>
-  `Hours left at ${power(power_MW)} MW electric: p50 dashed, p90 to p10 shaded`;
+  `Hours left at ${power(power_MW)} MW electric, p50; p90 to p10 shaded`;
 
 function wordsAt(history: History, second: number | undefined, middle: string | undefined): string {
   const row = history.rows.find((one) => Date.parse(String(one.time)) / 1000 === second);

@@ -35,7 +35,9 @@ export function Hours({ entry, present }: { entry: UnitEntry | null; present: As
     const value = typedPower(typed);
     setPower(value);
     setWrong(
-      value === null ? `A power in MW is a number above 0, as in 1.8; "${typed}" is not.` : null,
+      value === null
+        ? `A power in MW is a number above 0 and below 10000, as in 1.8; "${typed}" is not.`
+        : null,
     );
   }
 
@@ -49,7 +51,7 @@ export function Hours({ entry, present }: { entry: UnitEntry | null; present: As
       </ol>
       <HoursAge entry={entry} full_h={full_h} />
       <form class="ask" onSubmit={submit}>
-        <label for="power">At another power</label>
+        <label for="power">Hours at</label>
         <span class="entry">
           <input
             ref={input}

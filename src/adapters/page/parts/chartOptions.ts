@@ -2,7 +2,7 @@ import type uPlot from 'uplot';
 
 export type ChartKind = 'charge' | 'hours';
 
-const HEIGHT = 118;
+const HEIGHT = 104;
 const LEAST_S = 3_600;
 
 /** Ends of a time axis [s]: a moment alone stands amid its hour; left to itself it would get years. */

@@ -1,15 +1,11 @@
-/** A table that may be wider than a phone: it scrolls within itself, by keys too. */
-export function Scrolled({
-  label,
-  children,
-}: {
-  label: string;
-  children: preact.ComponentChildren;
-}) {
+import type { ComponentChildren } from 'preact';
+import { Wide } from '../parts/Wide.js';
+
+/** A table that may be wider than a phone. */
+export function Scrolled({ label, children }: { label: string; children: ComponentChildren }) {
   return (
-    // biome-ignore lint/a11y/noNoninteractiveTabindex: what scrolls has to be reached by keys
-    <section class="scrolled" tabIndex={0} aria-label={label}>
+    <Wide label={label} name="scrolled">
       {children}
-    </section>
+    </Wide>
   );
 }
