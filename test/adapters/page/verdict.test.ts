@@ -92,6 +92,18 @@ describe('whether all is well', () => {
     const stale = { level: 'unknown', words: 'Not known.', because: '' } as const;
     const units = Array.from({ length: 8 }, (_, i) => ({ name: `U${i}`, ...well }));
     expect(siteVerdict(units).words).toBe('All 8 units as they should be.');
+    // What is known and acknowledged is not as it should be, though it asks for nothing.
+    const known = {
+      level: 'known',
+      words: 'Nothing new. Known: hot_axis_03',
+      because: '',
+    } as const;
+    expect(siteVerdict(units.map((one, i) => (i < 1 ? { ...one, ...known } : one)))).toEqual({
+      level: 'known',
+      words: 'Nothing new. 7 of 8 units as they should be.',
+      because: 'U0: Nothing new. Known: hot_axis_03',
+    });
+    expect(siteVerdict([{ name: 'U0', ...known }])).toMatchObject({ words: known.words });
     const six = units.map((one, i) => (i < 6 ? { ...one, ...stale } : one));
     expect(siteVerdict(six)).toEqual({
       level: 'unknown',

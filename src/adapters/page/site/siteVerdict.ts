@@ -33,23 +33,32 @@ export function leftOutVerdict({ name, faults }: LeftOut): UnitVerdict {
 export function siteVerdict(all: readonly UnitVerdict[]): Verdict {
   const worst = ORDER.find((level) => all.some((one) => one.level === level)) ?? 'unknown';
   if (all.length === 0) return { level: worst, words: 'No units yet.', because: '' };
-  const well = all.filter(({ level }) => level === 'well' || level === 'known').length;
+  const well = all.filter(({ level }) => level === 'well').length;
   const words = `${well} of ${counted(all.length, 'unit')} as ${well === 1 ? 'it' : 'they'} should be.`;
   const asked = ORDER.slice(0, 3).flatMap((level) => all.filter((one) => one.level === level));
+  const [only] = all;
+  if (all.length === 1 && only !== undefined && only.level !== 'well') return only;
   if (asked.length === 0) {
-    const known = all.filter(({ level }) => level === 'known').map(({ name }) => name);
-    const because = known.length === 0 ? 'Nothing stands.' : `Acknowledged at ${known.join(', ')}.`;
+    const known = all.filter(({ level }) => level === 'known');
+    if (known.length > 0) {
+      // What is acknowledged asks for nothing, but it is not as it should be.
+      const where = known.slice(0, NAMED).map(({ name, words: what }) => `${name}: ${what}`);
+      const more = known.length > NAMED ? [`and ${known.length - NAMED} more`] : [];
+      return {
+        level: worst,
+        words: `Nothing new. ${words}`,
+        because: [...where, ...more].join(' · '),
+      };
+    }
     return {
       level: worst,
       words:
         all.length === 1
           ? 'The unit is as it should be.'
           : `All ${counted(all.length, 'unit')} as they should be.`,
-      because,
+      because: 'Nothing stands.',
     };
   }
-  const [only] = asked;
-  if (all.length === 1 && only !== undefined) return only;
   const named = asked.slice(0, NAMED).map(({ name, words: what }) => `${name}: ${what}`);
   const rest = asked.length > NAMED ? [`and ${asked.length - NAMED} more`] : [];
   return { level: worst, words, because: [...named, ...rest].join(' · ') };
