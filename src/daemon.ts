@@ -41,6 +41,7 @@ import { pageFolder } from './daemon/pageFolder.js';
 import { Pipeline } from './daemon/pipeline.js';
 import { DaemonService } from './daemon/plantService.js';
 import { Questions } from './daemon/questions.js';
+import { toldBy } from './daemon/rewind/remake.js';
 import { Rewinder } from './daemon/rewind/rewinder.js';
 import { rewindRules } from './daemon/rewind/rules.js';
 import { Speaker } from './daemon/speaker.js';
@@ -143,7 +144,11 @@ class RockhourDaemon implements Daemon {
       join(folder, 'history.sqlite'),
       site.store,
       alarmsConfig,
-      (what) => this.store.damaged('history', what),
+      (what) => {
+        this.store.damaged('history', what);
+        this.rewinder.historyLost();
+      },
+      () => toldBy(this.runners.values()),
     );
     const journal = new Journal(
       join(folder, 'journal.sqlite'),

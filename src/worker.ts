@@ -41,6 +41,8 @@ export interface WorkerReply {
   readonly id: number;
   readonly answer?: Answer;
   readonly failure?: string;
+  /** The failure's own code, where it has one. */
+  readonly code?: string;
 }
 
 function answerTo(unit: UnitDefinition, question: WorkerQuestion): Answer {
@@ -75,10 +77,17 @@ function serve(port: NonNullable<typeof parentPort>): void {
       }
       reply = { id, answer: answerTo(unit, question) };
     } catch (thrown) {
-      reply = { id, failure: reasonOf(thrown) };
+      reply = { id, failure: reasonOf(thrown), ...codeOf(thrown) };
     }
     port.postMessage(reply);
   });
+}
+
+/** Of what lies at the ground of it: whether a file is damaged shows there. */
+function codeOf(thrown: unknown): { code?: string } {
+  const { code, cause } = (thrown ?? {}) as { code?: unknown; cause?: unknown };
+  if (cause !== undefined && cause !== null) return codeOf(cause);
+  return typeof code === 'string' ? { code } : {};
 }
 
 if (parentPort) serve(parentPort);

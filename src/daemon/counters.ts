@@ -33,6 +33,8 @@ const OWN_COUNTS = [
   'rewinds',
   'scans_again',
   'estimates_revised',
+  /** Estimates that a damaged history had lost, and that were made again from the journal. */
+  'estimates_remade',
   'rewind_failures',
   /** Times that a unit was put back to a backup, and that it failed. */
   'restores',
@@ -73,8 +75,9 @@ const OWN_COUNTS = [
   'offers_removed',
   /** Rows that went before their time, since the disk was nearly full. */
   'rows_thinned_early',
-  /** Damaged files of the store that were set aside. */
+  /** Damaged files of the store that were set aside; entries that are known to be lost with a journal. */
   'stores_set_aside',
+  'journal_entries_lost',
   'estimates_thinned',
   'estimates_not_forwarded',
 ] as const;

@@ -217,12 +217,19 @@ export class DaemonService implements PlantService {
     return this.parts.history.rewinds.between(unit, ...ask);
   }
 
-  bedReport(id: string, question: ReportQuestion): Promise<{ text: string; style: string }> {
+  async bedReport(id: string, question: ReportQuestion): Promise<{ text: string; style: string }> {
     const { unit } = this.runner(id);
     this.parts.counters.add('questions');
-    const { version, siteName, questions, store, clock } = this.parts;
+    const { version, siteName, questions, store, clock, history } = this.parts;
     const made_ms = Math.floor(clock.now());
-    return questions.report(unit, { ...question, version, site: siteName, made_ms, store });
+    const ask = { ...question, version, site: siteName, made_ms, store };
+    try {
+      return await questions.report(unit, ask);
+    } catch (thrown) {
+      // It reads the file beside the daemon: damage is acted on here.
+      if (!history.mend(thrown)) throw thrown;
+      return questions.report(unit, ask);
+    }
   }
 
   get shelveMost_h(): number {

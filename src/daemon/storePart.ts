@@ -70,9 +70,11 @@ export class StorePart {
   damaged(file: 'journal' | 'history', what: SetAside): void {
     this.options.log.error(
       `${file}.sqlite was damaged: ${what.reason}; kept as ${what.kept}, goes on with a fresh one ` +
-        `and ${what.rows} rows of the old one`,
+        `and ${what.rows} rows of the old one` +
+        (what.lost === undefined ? '' : `; ${what.lost} entries are lost`),
     );
     this.options.counters.add('stores_set_aside');
+    this.options.counters.add('journal_entries_lost', what.lost ?? 0);
     if (this.timer) this.tell(file, what);
     else this.early.push({ file, what });
   }

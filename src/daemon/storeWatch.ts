@@ -62,7 +62,8 @@ export class StoreWatch {
   damaged(file: 'journal' | 'history', what: SetAside, time_ms: number): WatchEvent[] {
     const told =
       `The ${file} was damaged (${what.reason}) and was set aside as ${what.kept}. ` +
-      `A fresh one was begun with ${what.rows} rows that could still be read.`;
+      `A fresh one was begun with ${what.rows} rows that could still be read` +
+      (what.lost === undefined ? '.' : `; ${what.lost} entries are lost.`);
     return [
       ...this.of('store_damaged', file, 'raised', time_ms, told, null, null),
       ...this.of(

@@ -51,11 +51,11 @@ export class WorkerLine {
     return worker;
   }
 
-  private settle({ id, answer, failure }: WorkerReply): void {
+  private settle({ id, answer, failure, code }: WorkerReply): void {
     const waiting = this.waiting.get(id);
     this.waiting.delete(id);
     if (failure === undefined) waiting?.resolve(answer ?? null);
-    else waiting?.reject(new Error(failure));
+    else waiting?.reject(Object.assign(new Error(failure), code === undefined ? {} : { code }));
   }
 
   private lost(worker: Worker, reason: Error): void {

@@ -106,6 +106,15 @@ export class Estimates {
     );
   }
 
+  /** What was told of hours at a time; null where nothing was. */
+  dispatchAt(unit: string, time_ms: number): DispatchAnswer[] | null {
+    const json = this.database
+      .prepare('SELECT json FROM dispatch WHERE unit = ? AND time = ?')
+      .pluck()
+      .get(unit, time_ms) as string | undefined;
+    return json === undefined ? null : (JSON.parse(json) as DispatchAnswer[]);
+  }
+
   latest(unit: string): Estimate | null {
     return this.newest<Estimate>('estimates', unit)?.content ?? null;
   }

@@ -1,41 +1,36 @@
 import type { StoreConfig } from '../../config/site.js';
 import type { UnitDefinition } from '../../core/definitions.js';
 import { reasonOf } from '../../errors.js';
-import { type AlarmRules, Alarms } from './alarms.js';
-import { Checkpoints } from './checkpoints.js';
-import { Cycles } from './cycles.js';
+import type { AlarmRules, Alarms } from './alarms.js';
+import type { Checkpoints } from './checkpoints.js';
+import type { Cycles } from './cycles.js';
 import { type Database, emptyBytes, openDatabase, openToRead, storeFailure } from './database.js';
-import { Estimates } from './estimates.js';
+import type { Estimates } from './estimates.js';
 import { EventQueue } from './eventQueue.js';
-import { Events } from './events.js';
-import { LateReadings } from './lateReadings.js';
-import { Layouts } from './layouts.js';
-import { Offers } from './offers.js';
-import { Outbox } from './outbox.js';
+import type { Events } from './events.js';
+import { freshHistory } from './freshHistory.js';
+import { guarded } from './guarded.js';
+import { guardedParts, type HandedOut, type HistoryParts, partsOf } from './historyParts.js';
+import type { LateReadings } from './lateReadings.js';
+import type { Offers } from './offers.js';
+import type { Outbox } from './outbox.js';
 import { Past } from './past.js';
-import { Profiles } from './profiles.js';
+import type { Profiles } from './profiles.js';
 import { applyRetention, forgetOldest, type RetentionCounts, thinEstimates } from './retention.js';
-import { RewindPoints } from './rewindPoints.js';
-import { Rewinds } from './rewinds.js';
-import { Rollups } from './rollups.js';
+import type { RewindPoints } from './rewindPoints.js';
+import type { Rewinds } from './rewinds.js';
 import { HISTORY_SCHEMA } from './schema.js';
-import { Sequence } from './sequence.js';
-import {
-  isDamage,
-  moveAside,
-  type Salvaged,
-  type SetAside,
-  takeOverRows,
-  wasOurs,
-} from './setAside.js';
-import { WatchViews } from './watchViews.js';
+import { isDamage, type SetAside, wasOurs } from './setAside.js';
+import type { WatchViews } from './watchViews.js';
 
-const ROW = { key: 'rowid', most: Number.MAX_SAFE_INTEGER } as const;
-/** What is taken over of a damaged history: all that cannot be made again, and is small. */
-const TAKEN_OVER: readonly Salvaged[] = [
-  ...['cursors', 'checkpoints', 'rewind_points', 'alarms', 'alarm_transitions', 'events', 'cycles'],
-  ...['offers', 'tellings', 'rewinds', 'withdrawals'],
-].map((table) => ({ table, ...ROW }));
+/** Name under which it is kept up to when estimates of a unit were lost and are to be made again. */
+const lostName = (unit: string) => `estimates of ${unit} lost before`;
+
+/** Estimates of a unit that a damaged history held: those of before a time. */
+export interface Lost {
+  readonly unit: string;
+  readonly before_ms: number;
+}
 
 /**
  * The local history: one SQLite file with estimates, dispatch answers, offers, profiles, events,
@@ -43,23 +38,12 @@ const TAKEN_OVER: readonly Salvaged[] = [
  * moments of it, checkpoints included, as a whole: the journal, which is synced, makes them again.
  */
 export class History {
-  private opened: {
-    readonly database: Database;
-    readonly rollups: Rollups;
-    readonly estimates: Estimates;
-    readonly profiles: Profiles;
-    readonly events: Events;
-    readonly alarms: Alarms;
-    readonly checkpoints: Checkpoints;
-    readonly outbox: Outbox;
-    readonly offers: Offers;
-    readonly cycles: Cycles;
-    readonly watch: WatchViews;
-    readonly rewindPoints: RewindPoints;
-    readonly late: LateReadings;
-    readonly rewinds: Rewinds;
-    readonly sequence: Sequence;
-  } | null = null;
+  private opened: HistoryParts | null = null;
+
+  /** The same parts, each call of which acts on damage. */
+  private handedOut: HandedOut | null = null;
+  private isToRead = false;
+  private isWriting = false;
 
   constructor(
     private readonly file: string,
@@ -67,6 +51,8 @@ export class History {
     private readonly rules: AlarmRules = { latching: [], out_of_service: [] },
     /** Told where the file was damaged and a fresh one has been begun. */
     private readonly setAside: (what: SetAside) => void = () => undefined,
+    /** What units that run have told: damaged meanwhile, it is lost and made again beside them. */
+    private readonly told: () => readonly Lost[] = () => [],
   ) {}
 
   /** @throws RockhourError STORE_FAILED; not where it was damaged: it is set aside then */
@@ -85,92 +71,104 @@ export class History {
    * over as far as they can be read; estimates are made again from the oldest state, where the journal
    * still reaches that far: of the last two days in general.
    *
-   * @param remakes false while the daemon runs: its units are ahead, and their past stays in the old file
+   * @param atStart units go back to the oldest state; else they are ahead, and what they have told is
+   *   noted as lost, to be made again beside them
    */
-  private renew(thrown: unknown, remakes: boolean): void {
+  private renew(thrown: unknown, atStart: boolean): void {
     this.stop();
-    const kept = moveAside(this.file);
-    const fresh = openDatabase(this.file, 'normal', HISTORY_SCHEMA);
-    const rows = fresh.transaction(() => takeOverRows(kept, fresh, TAKEN_OVER))();
-    if (remakes) {
-      fresh.exec(`DELETE FROM checkpoints WHERE unit IN (SELECT unit FROM rewind_points);
+    const { fresh, kept, rows } = freshHistory(this.file, (database) => {
+      const note = database.prepare('INSERT OR REPLACE INTO cursors (name, value) VALUES (?, ?)');
+      for (const { unit, before_ms } of atStart ? [] : this.told())
+        note.run(lostName(unit), before_ms);
+      if (!atStart) return;
+      database.exec(`DELETE FROM checkpoints WHERE unit IN (SELECT unit FROM rewind_points);
         DELETE FROM rewind_points WHERE (unit, time) NOT IN
           (SELECT unit, min(time) FROM rewind_points GROUP BY unit);`);
-    }
+    });
     this.open(fresh);
     this.setAside({ kept, reason: reasonOf(thrown), rows });
   }
 
+  /**
+   * Acts on damage that a question has met, as on damage met by a write.
+   * @returns whether it was damage, and a fresh history is in use
+   */
+  mend(thrown: unknown): boolean {
+    const { opened, isToRead } = this;
+    if (!isDamage(thrown) || opened === null || isToRead) return false;
+    // Within a transaction the whole of it is run again, by `write`.
+    if (this.isWriting || opened.database.inTransaction) return false;
+    try {
+      this.renew(thrown, false);
+      return true;
+    } catch (again) {
+      throw storeFailure(`reading the history ${this.file}`, again);
+    }
+  }
+
+  private ask<T>(read: () => T): T {
+    try {
+      return read();
+    } catch (thrown) {
+      if (!this.mend(thrown)) throw thrown;
+      return read();
+    }
+  }
+
   /** For reports: reads alone, beside a daemon. @throws RockhourError STORE_FAILED */
   startToRead(): void {
-    if (!this.opened) this.open(openToRead(this.file, HISTORY_SCHEMA));
+    if (this.opened) return;
+    this.isToRead = true;
+    this.open(openToRead(this.file, HISTORY_SCHEMA));
   }
 
   private open(database: Database): void {
-    const sequence = new Sequence(database);
-    const alarms = new Alarms(database, this.rules);
-    const layouts = new Layouts(database);
-    const rollups = new Rollups(database, layouts);
-    this.opened = {
-      database,
-      rollups,
-      estimates: new Estimates(database, sequence, layouts, rollups),
-      profiles: new Profiles(database),
-      events: new Events(database, sequence, alarms),
-      alarms,
-      checkpoints: new Checkpoints(database),
-      outbox: new Outbox(database),
-      offers: new Offers(database),
-      cycles: new Cycles(database, sequence),
-      watch: new WatchViews(database),
-      rewindPoints: new RewindPoints(database),
-      late: new LateReadings(database),
-      rewinds: new Rewinds(database, sequence),
-      sequence,
-    };
+    this.opened = partsOf(database, this.rules);
+    this.handedOut = guardedParts(this.opened, (thrown) => (this.mend(thrown) ? this.parts : null));
   }
 
   stop(): void {
     this.opened?.database.close();
     this.opened = null;
+    this.handedOut = null;
   }
 
   get estimates(): Estimates {
-    return this.parts.estimates;
+    return this.handed.estimates;
   }
   get profiles(): Profiles {
-    return this.parts.profiles;
+    return this.handed.profiles;
   }
   get events(): Events {
-    return this.parts.events;
+    return this.handed.events;
   }
   get alarms(): Alarms {
-    return this.parts.alarms;
+    return this.handed.alarms;
   }
   get checkpoints(): Checkpoints {
-    return this.parts.checkpoints;
+    return this.handed.checkpoints;
   }
   get outbox(): Outbox {
-    return this.parts.outbox;
+    return this.handed.outbox;
   }
   get offers(): Offers {
-    return this.parts.offers;
+    return this.handed.offers;
   }
   get cycles(): Cycles {
-    return this.parts.cycles;
+    return this.handed.cycles;
   }
   get watch(): WatchViews {
-    return this.parts.watch;
+    return this.handed.watch;
   }
 
   get rewindPoints(): RewindPoints {
-    return this.parts.rewindPoints;
+    return this.handed.rewindPoints;
   }
   get late(): LateReadings {
-    return this.parts.late;
+    return this.handed.late;
   }
   get rewinds(): Rewinds {
-    return this.parts.rewinds;
+    return this.handed.rewinds;
   }
 
   /** For what a rewind makes again of a unit. */
@@ -180,13 +178,15 @@ export class History {
 
   /** What is told outside, for a receiver that keeps its own place in it. */
   eventQueue(receiver: string): EventQueue {
-    return new EventQueue(() => this.parts.database, receiver);
+    const queue = new EventQueue(() => this.parts.database, receiver);
+    return guarded(queue, (thrown) => (this.mend(thrown) ? queue : null));
   }
 
   /** A number kept under a name over restarts; null before the first. */
   kept(name: string): number | null {
-    const value = this.parts.database.prepare('SELECT value FROM cursors WHERE name = ?').pluck();
-    return (value.get(name) as number | undefined) ?? null;
+    const sql = 'SELECT value FROM cursors WHERE name = ?';
+    const value = this.ask(() => this.parts.database.prepare(sql).pluck().get(name));
+    return (value as number | undefined) ?? null;
   }
 
   keep(name: string, value: number): void {
@@ -197,10 +197,20 @@ export class History {
     );
   }
 
+  /** Up to when estimates of a unit were lost and are not made again yet [ms]; null where none were. */
+  lostBefore(unit: string): number | null {
+    return this.kept(lostName(unit));
+  }
+
+  /** They are made again. */
+  remade(unit: string): void {
+    this.parts.database.prepare('DELETE FROM cursors WHERE name = ?').run(lostName(unit));
+  }
+
   /** Runs `write` in one transaction; SQLite's failures become errors of the catalogue. */
   write<T>(write: () => T): T {
     try {
-      return this.parts.database.transaction(write)();
+      return this.transact(write);
     } catch (thrown) {
       if (isDamage(thrown)) return this.writeAnew(thrown, write);
       if (thrown instanceof Error && 'code' in thrown && String(thrown.code).startsWith('SQLITE')) {
@@ -210,12 +220,22 @@ export class History {
     }
   }
 
+  private transact<T>(write: () => T): T {
+    const isOutermost = !this.isWriting;
+    this.isWriting = true;
+    try {
+      return this.parts.database.transaction(write)();
+    } finally {
+      if (isOutermost) this.isWriting = false;
+    }
+  }
+
   private writeAnew<T>(thrown: unknown, write: () => T): T {
     // Within a transaction of its own caller the outermost one is run again.
-    if (this.opened?.database.inTransaction) throw thrown;
+    if (this.isWriting || this.opened?.database.inTransaction) throw thrown;
     try {
       this.renew(thrown, false);
-      return this.parts.database.transaction(write)();
+      return this.transact(write);
     } catch (again) {
       throw storeFailure(`writing to the history ${this.file}`, again);
     }
@@ -223,11 +243,10 @@ export class History {
 
   /** Number of the newest journal entry that a saved state has taken in; 0 where there is none. */
   get journalReach(): number {
-    const found = this.parts.database.prepare(
-      `SELECT max(n) FROM (SELECT max(journal_seq) AS n FROM checkpoints
-         UNION ALL SELECT max(journal_seq) FROM rewind_points)`,
-    );
-    return (found.pluck().get() as number | null) ?? 0;
+    const sql = `SELECT max(n) FROM (SELECT max(journal_seq) AS n FROM checkpoints
+         UNION ALL SELECT max(journal_seq) FROM rewind_points)`;
+    const found = this.ask(() => this.parts.database.prepare(sql).pluck().get());
+    return (found as number | null) ?? 0;
   }
 
   /** See applyRetention. */
@@ -238,7 +257,7 @@ export class History {
 
   /** Empty pages within the file, which are written to before it grows [bytes]. */
   get emptyBytes(): number {
-    return emptyBytes(this.parts.database);
+    return this.ask(() => emptyBytes(this.parts.database));
   }
 
   /** Thins a day of estimates before its time; gives the rows that went. See applyRetention. */
@@ -259,7 +278,12 @@ export class History {
     return this.write(() => this.parts.rollups.fillBack());
   }
 
-  private get parts(): NonNullable<History['opened']> {
+  private get handed(): HandedOut {
+    if (!this.handedOut) throw new RangeError('history must be started, got one that is not');
+    return this.handedOut;
+  }
+
+  private get parts(): HistoryParts {
     if (!this.opened) throw new RangeError('history must be started, got one that is not');
     return this.opened;
   }

@@ -118,14 +118,16 @@ export class Journal {
     // What lost its source cannot be told any more.
     fresh.exec('DELETE FROM entries WHERE source NOT IN (SELECT no FROM sources)');
     this.open(fresh);
-    this.last = Math.max(this.last, last, this.reach());
+    const given = Math.max(this.last, last, this.reach());
+    const lost = countMissing(fresh, given);
+    this.last = given;
     if (this.last > 0) {
       const seq = this.last + LEFT_OUT;
       const source = this.sources.numberOf(UNIT_ITSELF, UNIT_ITSELF);
       this.insert.run(seq, source, 0, Date.now(), null, LEFT_OUT_MARK);
       this.last = seq;
     }
-    this.setAside({ kept, reason: reasonOf(thrown), rows });
+    this.setAside({ kept, reason: reasonOf(thrown), rows, lost });
   }
 
   /** Once more on a fresh file where this one is damaged. */
@@ -147,7 +149,7 @@ export class Journal {
 
   /** Empty pages within the file, which are written to before it grows [bytes]. */
   get emptyBytes(): number {
-    return emptyBytes(this.opened());
+    return this.mended(() => emptyBytes(this.opened()));
   }
 
   /** Number of the newest entry, 0 before the first. */
@@ -222,6 +224,10 @@ export class Journal {
 
   /** Number of the last entry that arrived before this time, 0 where there is none. */
   seqBefore(arrival_ms: number): number {
+    return this.mended(() => this.findBefore(arrival_ms));
+  }
+
+  private findBefore(arrival_ms: number): number {
     // Arrival times follow the numbers but for a clock that was set: no index is worth its writes.
     let low = (this.first('SELECT min(seq) AS n FROM entries') ?? 1) - 1;
     let high = this.last;
@@ -245,11 +251,9 @@ export class Journal {
     try {
       const end = Math.min(seq, this.last - 1);
       this.tail.clear();
-      return this.opened()
-        .prepare(
-          'DELETE FROM entries WHERE seq IN (SELECT seq FROM entries WHERE seq <= ? ORDER BY seq LIMIT ?)',
-        )
-        .run(end, most).changes;
+      const sql =
+        'DELETE FROM entries WHERE seq IN (SELECT seq FROM entries WHERE seq <= ? ORDER BY seq LIMIT ?)';
+      return this.mended(() => this.opened().prepare(sql).run(end, most).changes);
     } catch (thrown) {
       throw storeFailure(`thinning the journal ${this.file}`, thrown);
     }
@@ -312,4 +316,16 @@ export class Journal {
   private first(sql: string): number | null {
     return this.opened().prepare(sql).pluck().get() as number | null;
   }
+}
+
+/**
+ * Numbers up to one that was given out that no entry has, behind the oldest there is: lost ones. Those
+ * that were left out before a mark were never given out.
+ */
+function countMissing(database: Database, given: number): number {
+  const sql = `SELECT coalesce(sum(gap), 0) AS gaps, max(seq) AS last FROM (
+      SELECT seq, iif(quality = ${LEFT_OUT_MARK}, 0, seq - 1 - lag(seq) OVER (ORDER BY seq)) AS gap
+      FROM entries)`;
+  const { gaps, last } = database.prepare(sql).get() as { gaps: number; last: number | null };
+  return last === null ? given : gaps + given - last;
 }

@@ -28,6 +28,13 @@ export class LateReadings {
     for (const { time_ms, seq } of readings) insert.run(unit, time_ms, seq);
   }
 
+  has(unit: string, { time_ms, seq }: LateReading): boolean {
+    const found = this.database
+      .prepare('SELECT 1 FROM late_readings WHERE unit = ? AND time = ? AND seq = ?')
+      .get(unit, time_ms, seq);
+    return found !== undefined;
+  }
+
   /** What waits, of entries up to a number of the journal; null where nothing does. */
   waiting(unit: string, through_seq = Number.MAX_SAFE_INTEGER): LateWaiting | null {
     const { count, oldest_ms } = this.database

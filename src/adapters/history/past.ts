@@ -41,6 +41,10 @@ const PIECE_MS = LEVELS_MS[1];
 export class Past {
   /** Estimates that have changed. */
   revised = 0;
+  /** Estimates that were lost and are there again, and times of the first and the last of them [ms]. */
+  filled = 0;
+  filledFrom_ms: number | null = null;
+  filledTo_ms: number | null = null;
   private reached_ms: number;
   private rolled_ms: number;
   private isWithdrawn = false;
@@ -85,6 +89,22 @@ export class Past {
     }
     this.reached_ms = end_ms;
     if (end_ms - this.rolled_ms >= PIECE_MS) this.roll();
+  }
+
+  /** Enters a scan that was lost; where there is an estimate of its time nothing changes. */
+  fill({ estimate, measured, profile, watch, cycle }: ScanAgain): void {
+    const { estimates, profiles, cycles } = this.parts;
+    const time_ms = Date.parse(estimate.time);
+    const told = estimates.dispatchAt(this.unit.id, time_ms);
+    const whole = told === null ? estimate : { ...estimate, dispatch: told };
+    if (estimates.add(this.unit, whole, measured)) {
+      this.filled++;
+      this.filledFrom_ms ??= time_ms;
+      this.filledTo_ms = time_ms;
+    }
+    if (profile) profiles.add(profile);
+    if (watch) this.watch.add(watch);
+    if (cycle) cycles.add(cycle);
   }
 
   /** The last scan is entered: what was told beyond is void. */

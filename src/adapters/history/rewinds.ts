@@ -44,4 +44,16 @@ export class Rewinds {
       .prepare('INSERT INTO withdrawals (seq, unit, time, json) VALUES (?, ?, ?, ?)')
       .run(this.sequence.next++, unit, to_ms, JSON.stringify({ from, to }));
   }
+
+  /** All that was withdrawn of a unit's scans. */
+  withdrawn(unit: string): { readonly from_ms: number; readonly to_ms: number }[] {
+    const rows = this.database
+      .prepare('SELECT json FROM withdrawals WHERE unit = ?')
+      .pluck()
+      .all(unit) as string[];
+    return rows.map((json) => {
+      const { from, to } = JSON.parse(json) as { from: string; to: string };
+      return { from_ms: Date.parse(from), to_ms: Date.parse(to) };
+    });
+  }
 }

@@ -20,6 +20,8 @@ export interface SetAside {
   readonly reason: string;
   /** Rows taken over from it. */
   readonly rows: number;
+  /** Rows that are known to have been in it and are lost; absent where that cannot be told. */
+  readonly lost?: number;
 }
 
 export function isDamage(thrown: unknown): boolean {
@@ -73,12 +75,13 @@ export function moveAside(file: string, now = new Date()): string {
   return kept;
 }
 
-/** A table to take over, its whole-number key, and at most how many of its newest numbers. */
-export interface Salvaged {
-  readonly table: string;
-  readonly key: string;
-  readonly most: number;
-}
+/**
+ * A table to take over, its whole-number key, and at most how many of its newest numbers; one without
+ * such a key is walked through from both its ends.
+ */
+export type Salvaged =
+  | { readonly table: string; readonly key: string; readonly most: number }
+  | { readonly table: string; readonly key: readonly string[] };
 
 /**
  * Copies what can still be read of a damaged database into a fresh one, in pieces of a few rows: one that
@@ -111,52 +114,105 @@ function openKept(kept: string): Database {
 }
 
 function takeOverTable(damaged: Database, fresh: Database, salvaged: Salvaged): number {
-  const { table, key, most } = salvaged;
+  const { table } = salvaged;
   const columns = fresh.pragma(`table_info(${table})`) as { name: string; type: string }[];
   const names = columns.map(({ name }) => `"${name}"`).join(', ');
   const insert = fresh.prepare(
     `INSERT OR IGNORE INTO ${table} (${names}) VALUES (${columns.map(() => '?').join(', ')})`,
   );
   const fits = (row: unknown[]) =>
-    row.every((value, i) => columns[i]!.type !== 'INTEGER' || Number.isSafeInteger(value));
+    row.every((value, i) => columns[i]!.type !== 'INTEGER' || isWhole(value));
   let rows = 0;
-  const take = (found: unknown[][]) => {
-    for (const row of found) {
-      if (!fits(row)) continue;
-      try {
-        rows += insert.run(...row).changes;
-      } catch {
-        // A row whose bytes are garbage fits no table.
-      }
+  const take = (row: unknown[]) => {
+    if (!fits(row)) return;
+    try {
+      rows += insert.run(...row).changes;
+    } catch {
+      // A row whose bytes are garbage fits no table.
     }
   };
   try {
-    // Each by itself is a look at one end of the table; both in one would read all of it.
-    const [least, last] = ['min', 'max'].map(
-      (end) =>
-        damaged.prepare(`SELECT ${end}(${key}) FROM ${table}`).pluck().get() as number | null,
-    ) as [number | null, number | null];
-    if (least === null || last === null) return 0;
-    const piece = damaged
-      .prepare(`SELECT ${names} FROM ${table} WHERE ${key} > ? AND ${key} <= ? ORDER BY ${key}`)
-      .raw();
-    const next = damaged.prepare(`SELECT min(${key}) FROM ${table} WHERE ${key} > ?`).pluck();
-    for (let at = Math.max(least, last - most + 1) - 1; at < last; ) {
-      try {
-        take(piece.all(at, at + ROWS) as unknown[][]);
-      } catch {
-        // Left out.
-      }
-      at += ROWS;
-      try {
-        // Numbers may have been left out.
-        at = Math.max(at, ((next.get(at) as number | null) ?? last) - 1);
-      } catch {
-        // Goes on piece by piece.
-      }
-    }
+    if ('most' in salvaged) walkByNumber(damaged, salvaged, names, take);
+    else walkFromBothEnds(damaged, salvaged, names, take);
   } catch {
     // Nothing more of this table.
   }
   return rows;
+}
+
+/** Columns of whole numbers may be empty where the table lets them be. */
+function isWhole(value: unknown): boolean {
+  return value === null || Number.isSafeInteger(value);
+}
+
+function walkByNumber(
+  damaged: Database,
+  { table, key, most }: Extract<Salvaged, { most: number }>,
+  names: string,
+  take: (row: unknown[]) => void,
+): void {
+  // Each by itself is a look at one end of the table; both in one would read all of it.
+  const [least, last] = ['min', 'max'].map(
+    (end) => damaged.prepare(`SELECT ${end}(${key}) FROM ${table}`).pluck().get() as number | null,
+  ) as [number | null, number | null];
+  if (least === null || last === null) return;
+  const piece = damaged
+    .prepare(`SELECT ${names} FROM ${table} WHERE ${key} > ? AND ${key} <= ? ORDER BY ${key}`)
+    .raw();
+  const next = damaged.prepare(`SELECT min(${key}) FROM ${table} WHERE ${key} > ?`).pluck();
+  for (let at = Math.max(least, last - most + 1) - 1; at < last; ) {
+    try {
+      for (const row of piece.all(at, at + ROWS) as unknown[][]) take(row);
+    } catch {
+      // Left out.
+    }
+    at += ROWS;
+    try {
+      // Numbers may have been left out.
+      at = Math.max(at, ((next.get(at) as number | null) ?? last) - 1);
+    } catch {
+      // Goes on piece by piece.
+    }
+  }
+}
+
+/** What lies between two damaged pages is left out. */
+function walkFromBothEnds(
+  damaged: Database,
+  { table, key }: Extract<Salvaged, { key: readonly string[] }>,
+  names: string,
+  take: (row: unknown[]) => void,
+): void {
+  for (const way of ['ASC', 'DESC']) {
+    const order = key.map((name) => `"${name}" ${way}`).join(', ');
+    try {
+      const rows = damaged.prepare(`SELECT ${names} FROM ${table} ORDER BY ${order}`).raw();
+      for (const row of rows.iterate() as IterableIterator<unknown[]>) take(row);
+      return;
+    } catch {
+      // From the other end.
+    }
+  }
+}
+
+/** Numbers that were given out are never given out again: those of a damaged database count on. */
+export function countOn(kept: string, fresh: Database, table: string, least = 0): void {
+  let newest = least;
+  try {
+    const damaged = openKept(kept);
+    try {
+      const found = damaged.prepare('SELECT seq FROM sqlite_sequence WHERE name = ?').pluck();
+      const seq = found.get(table);
+      if (Number.isSafeInteger(seq)) newest = Math.max(newest, seq as number);
+    } finally {
+      damaged.close();
+    }
+  } catch {
+    // What can be told from elsewhere has to do.
+  }
+  const now = fresh.prepare('SELECT seq FROM sqlite_sequence WHERE name = ?').pluck().get(table);
+  if (now === undefined)
+    fresh.prepare('INSERT INTO sqlite_sequence (name, seq) VALUES (?, ?)').run(table, newest);
+  else if (newest > (now as number))
+    fresh.prepare('UPDATE sqlite_sequence SET seq = ? WHERE name = ?').run(newest, table);
 }

@@ -30,6 +30,11 @@ export interface RewindRecord {
   readonly differences_left_out: number;
   /** Where the unit was put back to a backup: of when its state is, and who did it; else absent. */
   readonly restored?: { readonly state_of: string; readonly who: string };
+  /**
+   * Where a damaged history had lost them: estimates that are there again, and whether no saved state was
+   * left, so that they are of an estimator begun anew; else absent.
+   */
+  readonly remade?: { readonly estimates: number; readonly afresh: boolean };
 }
 
 export const MOST_DIFFERENCES = 100;

@@ -1,5 +1,5 @@
 import type { History } from '../../adapters/history/history.js';
-import type { Journal, JournalEntry } from '../../adapters/history/journal.js';
+import type { Journal, JournalEntry, ReadingEntry } from '../../adapters/history/journal.js';
 import type { LateReading } from '../../adapters/history/lateReadings.js';
 import type { Past } from '../../adapters/history/past.js';
 import { believedTime } from '../../core/scan/assemble.js';
@@ -28,6 +28,13 @@ export interface RerunParts {
   readonly point_every_ms: number;
   /** The live runner has worked off all that it has taken. */
   isAtRest(): boolean;
+  /** Estimates of before a time are lost: only what is not there is entered, with this revision. */
+  readonly fill?: {
+    readonly before_ms: number;
+    revisionAt(time_ms: number): number;
+  };
+  /** An entry of the journal came late. */
+  late?(entry: ReadingEntry): void;
 }
 
 /**
@@ -80,6 +87,7 @@ export class Rerun {
       seq = Math.max(seq, reached);
       for (const entry of entries) yield* this.take(entry);
       yield 'more';
+      if (this.isFilled) return;
       if (seq < live.seq) continue;
       yield* this.takeLateBefore(Number.POSITIVE_INFINITY);
       if (this.parts.isAtRest() && seq >= live.seq) return;
@@ -92,7 +100,8 @@ export class Rerun {
     const before_ms =
       entry.kind === 'close' ? (entry.scan_index + 1) * this.period_ms : believedTime(entry);
     yield* this.takeLateBefore(before_ms);
-    this.parts.second.take(entry, 0);
+    const fate = this.parts.second.take(entry, 0);
+    if (fate === 'late' && entry.kind === 'reading') this.parts.late?.(entry);
     yield* this.steps();
   }
 
@@ -130,6 +139,10 @@ export class Rerun {
     const { estimate, profile, watch, cycle, events } = step.step;
     const { index, scan } = step.closed;
     if (scan.time_ms < this.past.from_ms) return;
+    if (this.parts.fill) {
+      this.fill(step, this.parts.fill);
+      return;
+    }
     const newest_ms = live.view.estimate ? Date.parse(live.view.estimate.time) : scan.time_ms;
     this.past.enter(
       { estimate, measured: step.measured, profile, watch, cycle },
@@ -144,6 +157,22 @@ export class Rerun {
     const state = second.checkpoint();
     if (state) history.rewindPoints.add(second.unit, state, point_every_ms, this.lastPoint_ms);
     this.lastPoint_ms = scan.time_ms;
+  }
+
+  private fill(step: RunnerStep, { before_ms, revisionAt }: NonNullable<RerunParts['fill']>): void {
+    const { estimate, profile, watch, cycle } = step.step;
+    const time_ms = Date.parse(estimate.time);
+    this.last = step;
+    if (time_ms >= before_ms) return;
+    const revised = { ...estimate, revision: revisionAt(time_ms) };
+    this.past.fill({ estimate: revised, measured: step.measured, profile, watch, cycle });
+    this.scans++;
+  }
+
+  /** All that was lost has been made again. */
+  private get isFilled(): boolean {
+    const { fill } = this.parts;
+    return fill !== undefined && this.reached_ms >= fill.before_ms;
   }
 
   /** States of the live runner that are newer than the last of the second one are of no use any more. */

@@ -7,6 +7,8 @@ import type { SteadyClock } from '../clock.js';
 import type { Entering } from '../entering.js';
 import type { RunnerStep, UnitRunner } from '../unitRunner.js';
 import type { GivenStart } from './given.js';
+import { type Remade, remakeWork } from './remake.js';
+import { rewindWords, tellRemade, tellRewound } from './told.js';
 import { type Outcome, restoreWork, rewindWork, type WorkParts } from './work.js';
 
 export interface RewinderOptions extends WorkParts {
@@ -49,7 +51,9 @@ interface Job {
   readonly runner: UnitRunner;
   /** A state from outside is where it begins. */
   readonly given?: Given;
-  readonly work: Generator<'more' | 'wait', Outcome | null>;
+  /** Estimates that a damaged history lost are made again; the live unit stays as it is. */
+  readonly isRemake?: true;
+  readonly work: Generator<'more' | 'wait', Outcome | Remade | null>;
 }
 
 /**
@@ -59,6 +63,8 @@ interface Job {
  */
 export class Rewinder {
   private readonly waiting = new Map<string, Waiting>();
+  /** Units whose estimates were lost with a damaged history. */
+  private readonly lost = new Set<UnitRunner>();
   private given: Given[] = [];
   private job: Job | null = null;
   private timer: NodeJS.Timeout | null = null;
@@ -71,13 +77,24 @@ export class Rewinder {
   /** Once units are restored: what waited before the stop waits on. */
   start(): void {
     this.running = true;
-    const { runners, history, steady } = this.options;
-    const now = steady.now();
-    for (const { unit } of runners) {
-      const last = history.rewinds.latest(unit.id);
-      if (last) this.lastDone.set(unit.id, last);
-      if (history.late.waiting(unit.id)) this.waiting.set(unit.id, { first_ms: now, last_ms: now });
+    const { runners, history } = this.options;
+    for (const runner of runners) {
+      const { id } = runner.unit;
+      const last = history.rewinds.latest(id);
+      if (last) this.lastDone.set(id, last);
+      if (history.late.waiting(id)) this.await(id);
+      if (history.lostBefore(id) !== null) this.lost.add(runner);
     }
+  }
+
+  /** A damaged history was set aside while units run: what they had told is made again. */
+  historyLost(): void {
+    if (this.running) for (const runner of this.options.runners) this.lost.add(runner);
+  }
+
+  private await(unit: string): void {
+    const now = this.options.steady.now();
+    this.waiting.set(unit, { first_ms: now, last_ms: now });
   }
 
   stop(): void {
@@ -106,18 +123,16 @@ export class Rewinder {
 
   /** How it stands with a unit's late readings, in words; empty where there never were any. */
   words(unit: string): string {
-    if (this.busyWith === unit)
-      return this.job?.given
-        ? 'is being put back to a backup'
-        : 'makes scans again with late readings';
+    if (this.busyWith === unit) {
+      if (this.job?.given) return 'is being put back to a backup';
+      if (this.job?.isRemake) return 'makes estimates again that a damaged history held';
+      return 'makes scans again with late readings';
+    }
     if (this.waiting.has(unit)) return 'late readings wait to be taken in';
+    if ([...this.lost].some((runner) => runner.unit.id === unit))
+      return 'estimates that a damaged history held wait to be made again';
     const last = this.lastDone.get(unit);
-    if (!last) return '';
-    const { done, late_used, scans, revision, restored } = last;
-    const what = restored
-      ? `to the backup of ${restored.state_of} by ${restored.who}`
-      : `${late_used} late readings`;
-    return `last rewind ${done}: ${what}, ${scans} scans made again, revision ${revision}`;
+    return last ? rewindWords(last) : '';
   }
 
   /** Unit whose scans are made again at present. */
@@ -177,11 +192,20 @@ export class Rewinder {
       .filter(([unit, waiting]) => isDue(unit, waiting))
       .sort(([, a], [, b]) => a.first_ms - b.first_ms);
     const runner = due && runners.find(({ unit }) => unit.id === due[0]);
+    if (runner === undefined) this.beginRemake();
     // A state that is to be taken over first comes to its time within the journal.
     if (!runner?.isSettled || !entering.flushLate(runner.unit.id)) return;
     this.waiting.delete(runner.unit.id);
     // Those that are noted by now: what comes until the work begins is the next one's.
     this.job = { runner, work: rewindWork(runner, runner.seq, this.options) };
+    this.goOn(0);
+  }
+
+  private beginRemake(): void {
+    const runner = [...this.lost].find(({ isSettled }) => isSettled);
+    if (runner === undefined || !this.options.entering.flushLate(runner.unit.id)) return;
+    this.lost.delete(runner);
+    this.job = { runner, isRemake: true, work: remakeWork(runner, this.options) };
     this.goOn(0);
   }
 
@@ -218,10 +242,13 @@ export class Rewinder {
         return;
       }
       this.job = null;
-      if (outcome) this.swap(job.runner, outcome);
-      if (outcome) job.given?.done(outcome.record);
+      if (outcome && 'rerun' in outcome) {
+        this.swap(job.runner, outcome);
+        job.given?.done(outcome.record);
+      } else if (outcome) this.remade(job.runner, outcome);
     } catch (thrown) {
       if (job.given) this.notRestored(job.given, thrown);
+      else if (job.isRemake) this.notRemade(job.runner, thrown);
       else this.failed(job.runner, thrown);
     }
   }
@@ -233,10 +260,12 @@ export class Rewinder {
     failed(thrown);
   }
 
-  private work({ work }: Job): { waits: boolean; outcome?: Outcome | null } {
+  private work({ work }: Job): { waits: boolean; outcome?: Outcome | Remade | null } {
     const end = performance.now() + SLICE_MS;
     do {
       const { done, value } = work.next();
+      // A damaged history ends it amid, and this is called again on the fresh one.
+      if (done && value === undefined) throw new Error('the work was cut off by a damaged history');
       if (done) return { waits: false, outcome: value };
       if (value === 'wait') return { waits: true };
     } while (performance.now() < end);
@@ -244,7 +273,7 @@ export class Rewinder {
   }
 
   private swap(live: UnitRunner, { rerun, second, record, events }: Outcome): void {
-    const { counters, log, history, stepped, event, alarmsMoved } = this.options;
+    const { history, stepped, event, alarmsMoved } = this.options;
     const { id } = live.unit;
     live.adopt(second);
     // A unit without a reading so far sees its scans close from here on.
@@ -253,20 +282,7 @@ export class Rewinder {
       live.plantClock.observe(second.newest_ms, steady_ms);
     this.failures.delete(id);
     this.lastDone.set(id, record);
-    counters.add('rewinds');
-    counters.add('scans_again', record.scans);
-    counters.add('estimates_revised', record.revised);
-    counters.add('late_used', record.late_used);
-    const { from, to, scans, late_used, revised, restored } = record;
-    if (restored) {
-      counters.add('restores');
-      const words = `put back to the state of ${restored.state_of} by ${restored.who}`;
-      log.warn({ unit: id, from, to, scans, revised }, `${words}; ${scans} scans made again`);
-    } else
-      log.info(
-        { unit: id, from, to, scans, late_used, revised, differences: record.differences.length },
-        `${late_used} readings that came late are in their scans now; ${scans} scans made again`,
-      );
+    tellRewound(record, this.options);
     for (const one of events) event(one);
     const { last } = rerun;
     const { estimate } = live.view;
@@ -277,20 +293,49 @@ export class Rewinder {
     if (moved) alarmsMoved(id);
   }
 
-  /** What was written is right as far as it goes; begun again, it comes to the same. */
-  private failed(runner: UnitRunner, thrown: unknown): void {
-    const { counters, notices, steady, history } = this.options;
+  private remade({ unit: { id } }: UnitRunner, { record, events, late }: Remade): void {
+    this.failures.delete(id);
+    this.lastDone.set(id, record);
+    tellRemade(record, this.options);
+    for (const one of events) this.options.event(one);
+    if (late > 0) this.await(id);
+  }
+
+  /** It is begun again; what is there by now stays. */
+  private notRemade(runner: UnitRunner, thrown: unknown): void {
+    const { counters, notices, history } = this.options;
     const { id } = runner.unit;
     this.job = null;
     counters.add('rewind_failures');
     counters.failed(thrown);
     const times = (this.failures.get(id) ?? 0) + 1;
     this.failures.set(id, times);
-    const now = steady.now();
+    const isOver = times >= MOST_FAILURES && !isStoreTrouble(thrown);
+    if (!isOver) this.lost.add(runner);
+    else {
+      this.failures.delete(id);
+      history.write(() => history.remade(id));
+    }
+    const next = isOver ? 'gives them up' : 'tries again';
+    notices.warn(
+      `rewind_failures ${id}`,
+      `unit ${id}: estimates of a damaged history could not be made again, ${next}: ${reasonOf(thrown)}`,
+    );
+    this.goOn(this.options.retry_ms ?? RETRY_MS);
+  }
+
+  /** What was written is right as far as it goes; begun again, it comes to the same. */
+  private failed(runner: UnitRunner, thrown: unknown): void {
+    const { counters, notices, history } = this.options;
+    const { id } = runner.unit;
+    this.job = null;
+    counters.add('rewind_failures');
+    counters.failed(thrown);
+    const times = (this.failures.get(id) ?? 0) + 1;
+    this.failures.set(id, times);
     let next = 'tries again';
     const isNoted = this.options.entering.flushLate(id);
-    if (times < MOST_FAILURES || isStoreTrouble(thrown) || !isNoted)
-      this.waiting.set(id, { first_ms: now, last_ms: now });
+    if (times < MOST_FAILURES || isStoreTrouble(thrown) || !isNoted) this.await(id);
     else {
       const lost = history.late.waiting(id, runner.seq)?.count ?? 0;
       history.late.take(id, runner.seq);

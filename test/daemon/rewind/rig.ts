@@ -1,6 +1,7 @@
 import { join } from 'node:path';
 import { History } from '../../../src/adapters/history/history.js';
 import { Journal, type JournalReading } from '../../../src/adapters/history/journal.js';
+import type { SetAside } from '../../../src/adapters/history/setAside.js';
 import type { UnitDefinition } from '../../../src/core/definitions.js';
 import type { Estimate } from '../../../src/core/estimate.js';
 import type { WatchEvent } from '../../../src/core/watch/event.js';
@@ -11,6 +12,7 @@ import { Entering } from '../../../src/daemon/entering.js';
 import { runnerMaker } from '../../../src/daemon/makeRunners.js';
 import { Notices } from '../../../src/daemon/notices.js';
 import { Pipeline } from '../../../src/daemon/pipeline.js';
+import { toldBy } from '../../../src/daemon/rewind/remake.js';
 import { Rewinder } from '../../../src/daemon/rewind/rewinder.js';
 import { rewindRules } from '../../../src/daemon/rewind/rules.js';
 import type { UnitRunner } from '../../../src/daemon/unitRunner.js';
@@ -40,6 +42,7 @@ export class Rig {
   readonly rewinder: Rewinder;
   readonly runners: ReadonlyMap<string, UnitRunner>;
   readonly told: WatchEvent[] = [];
+  readonly setAside: SetAside[] = [];
   readonly stepped: Estimate[] = [];
   readonly lines: string[] = [];
   /** The machine's clock, and that of the deadlines [ms]. */
@@ -55,7 +58,16 @@ export class Rig {
     const make = runnerMaker(site, core);
     this.runners = new Map(units.map((unit) => [unit.id, make(unit)]));
     this.journal = new Journal(join(this.folder, 'journal.sqlite'));
-    this.history = new History(join(this.folder, 'history.sqlite'), site.store);
+    this.history = new History(
+      join(this.folder, 'history.sqlite'),
+      site.store,
+      undefined,
+      (what) => {
+        this.setAside.push(what);
+        this.rewinder.historyLost();
+      },
+      () => toldBy(this.runners.values()),
+    );
     const destination = { write: (line: string) => void this.lines.push(JSON.parse(line).msg) };
     const log = createLog({ pretty: false, destination });
     const { journal, history, counters } = this;

@@ -35,6 +35,17 @@ export const rewindsSchema = z.object({
           )
           .describe('Alarms and alerts of the past that are otherwise by the late readings'),
         differences_left_out: z.number(),
+        restored: z
+          .object({ state_of: timeSchema, who: z.string() })
+          .optional()
+          .describe('Where the unit was put back to a backup'),
+        remade: z
+          .object({
+            estimates: z.number(),
+            afresh: z.boolean().describe('No state was left: of an estimator begun anew'),
+          })
+          .optional()
+          .describe('Where a damaged history had lost estimates: how many are there again'),
       }),
     )
     .describe('Newest first'),
