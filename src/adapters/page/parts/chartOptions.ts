@@ -5,14 +5,18 @@ export type ChartKind = 'charge' | 'hours';
 const HEIGHT = 104;
 const LEAST_S = 3_600;
 
-/** Ends of a time axis [s]: a moment alone stands amid its hour; left to itself it would get years. */
+/**
+ * Ends of a time axis [s]: a moment alone stands amid its hour. Left to itself uPlot gives one a day, of
+ * milliseconds: years of seconds.
+ */
 export function timeRange(
-  _chart: uPlot,
+  { data }: Pick<uPlot, 'data'>,
   from: number | null,
   to: number | null,
 ): uPlot.Range.MinMax {
   if (from === null || to === null) return [null, null];
-  return to - from < LEAST_S ? [to - LEAST_S / 2, to + LEAST_S / 2] : [from, to];
+  const last = data[0].length === 1 ? from : to;
+  return last - from < LEAST_S ? [last - LEAST_S / 2, last + LEAST_S / 2] : [from, to];
 }
 
 function ink(name: string): string {
