@@ -427,7 +427,7 @@ describe.skipIf(!chromium)('the page, in a real browser', { timeout: 30_000 }, (
     expect(await page.locator('[data-unit-row="north"] [data-cell="well"]').textContent()).toBe(
       'As it should be, but 4 thermocouples are left out.',
     );
-    expect(await field(page, 'verdict').textContent()).toBe('1 of 2 units as it should be.');
+    expect(await field(page, 'verdict').textContent()).toBe('0 of 2 units as they should be.');
     await south.locator('a').click();
     await page.waitForSelector('main[data-sheet="now"] [data-store="hot"]');
     expect(await page.locator('[data-unit="south"]').getAttribute('aria-pressed')).toBe('true');
