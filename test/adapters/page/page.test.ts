@@ -539,6 +539,7 @@ describe.skipIf(!chromium)('the page, in a real browser', { timeout: 30_000 }, (
     expect(await page.locator('#verdict').textContent()).not.toContain('a sentence that goes on');
     // Without a name it is asked for in view, over the sheet.
     await button.click();
+    await page.waitForSelector('#name-who');
     const field = (await page.locator('#name-who').boundingBox())!;
     expect(field.y + field.height).toBeLessThan(800);
   });
