@@ -42,6 +42,8 @@ function remembered(unit: UnitDefinition, make: () => number): number {
 /** Alike for units that are; properties of rock and gas, which are functions, are told apart by who they are. */
 function keyOf(unit: UnitDefinition): string {
   return JSON.stringify({ ...unit, id: '', name: '' }, (_, value: unknown) => {
+    // JSON has null for each of them.
+    if (typeof value === 'number' && !Number.isFinite(value)) return String(value);
     const isOpaque =
       typeof value === 'object' &&
       value !== null &&

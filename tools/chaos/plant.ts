@@ -3,6 +3,7 @@ import { join } from 'node:path';
 import { fileURLToPath } from 'node:url';
 import { connectAsync, type MqttClient } from 'mqtt';
 import { parse, stringify } from 'yaml';
+import { deliver } from '../../src/adapters/mqtt/readingPublisher.js';
 import { loadSite } from '../../src/config/load.js';
 import type { SiteConfig } from '../../src/config/site.js';
 import type { UnitDefinition } from '../../src/core/definitions.js';
@@ -15,8 +16,6 @@ const CELLS = 20;
 const AGO_MS = 10 * 86_400_000;
 /** As long as a scan may wait: the clock closes none while a broker or a daemon is away. */
 const DEADLINE_S = 3600;
-/** After a message that failed [ms]. */
-const RETRY_MS = 200;
 const CLIENT_ID = 'chaos';
 
 export interface ChaosSite {
@@ -121,7 +120,7 @@ export class ChaosPlant {
     const sent = this.chaos.site.sources.map(async ({ topic, channels, payload }) => {
       const values = channels.map((id) => this.value(id));
       const content = payload === 'array' ? { time, values } : { time, value: values[0] };
-      await this.deliver(topic, JSON.stringify(content));
+      await deliver(() => this.client, topic, JSON.stringify(content));
       this.acknowledged += channels.length;
     });
     const all = Promise.all(sent).then(() => {
@@ -129,21 +128,6 @@ export class ChaosPlant {
     });
     this.under.push(all);
     return all;
-  }
-
-  /**
-   * Until the broker has it. MQTT.js sends again by itself what was not acknowledged, but a connection
-   * that closes while it does so fails the message: then it is sent anew, and may come twice.
-   */
-  private async deliver(topic: string, payload: string): Promise<void> {
-    for (;;) {
-      try {
-        await this.client!.publishAsync(topic, payload, { qos: 1 });
-        return;
-      } catch {
-        await new Promise((resolve) => setTimeout(resolve, RETRY_MS));
-      }
-    }
   }
 
   /** A standing plant: plausible, and no two readings alike. */

@@ -57,19 +57,29 @@ export class ReadingPublisher {
     );
   }
 
-  /**
-   * Publishes a retained message of any content. MQTT.js sends again by itself what was not acknowledged,
-   * but a connection that closes while it does so fails the message: then it is sent anew.
-   */
+  /** Publishes a retained message of any content. */
   async say(topic: string, content: object, retain = true): Promise<void> {
-    const text = JSON.stringify(content);
-    while (this.client) {
-      try {
-        await this.client.publishAsync(topic, text, { qos: 1, retain });
-        return;
-      } catch {
-        await new Promise((resolve) => setTimeout(resolve, RETRY_MS));
-      }
+    await deliver(() => this.client, topic, JSON.stringify(content), retain);
+  }
+}
+
+/**
+ * Publishes at QoS 1 until the broker has it, or there is no client any more. MQTT.js sends again by itself
+ * what was not acknowledged, but a connection that closes while it does so fails a message that it never
+ * stored: that is sent anew, and may come twice.
+ */
+export async function deliver(
+  client: () => MqttClient | null,
+  topic: string,
+  payload: string,
+  retain = false,
+): Promise<void> {
+  for (let one = client(); one !== null; one = client()) {
+    try {
+      await one.publishAsync(topic, payload, { qos: 1, retain });
+      return;
+    } catch {
+      await new Promise((resolve) => setTimeout(resolve, RETRY_MS));
     }
   }
 }

@@ -1,6 +1,6 @@
 import { isBelieved, type SensorMemory } from './judgeMemory.js';
 import { gainAt } from './judgeUsual.js';
-import type { Candidate, JudgeWork } from './judgeWork.js';
+import { type Candidate, type JudgeWork, SHARE_SIGMA } from './judgeWork.js';
 import type { StoreModel, StoreState } from './storeTracker.js';
 import type { TubeModel } from './tube.js';
 
@@ -21,8 +21,6 @@ const IMPOSSIBLE_SIGMAS = 10;
 const IMPOSSIBLE_S = 300;
 /** Learned for so long, it had been sound before [s]. */
 const SOUND_S = 6 * 3600;
-/** A junction sees any share of the gas, evenly spread: 1/sqrt(12); it shows as another place. */
-const SHARE_SIGMA = 0.29;
 
 /**
  * Offset o and place p that the filter has learned of a sensor, against what its class allows:
@@ -31,7 +29,7 @@ const SHARE_SIGMA = 0.29;
  *   s_p^2 = place^2 + (share (lag_charge + lag_discharge))^2,
  *
  * m the median place of the believed ones of its string (a profile that is off there moves all alike),
- * or none, whichever makes it the less.
+ * or none, whichever makes it the less. A share of the gas that the junction sees shows as another place.
  */
 export function ownOf(model: StoreModel, state: StoreState, work: JudgeWork, c: Candidate): Own {
   const tube = model.tubes[c.tube] as TubeModel;

@@ -55,6 +55,9 @@ export const innovation = (c: Candidate): number => c.value_K - c.reading.value_
 
 const known = new WeakMap<StoreModel, JudgeWork>();
 
+/** Junctions see any share of the gas from none to all, evenly spread: 1/sqrt(12). */
+export const SHARE_SIGMA = 0.29;
+
 /** Sensors at one height: within this share of the bed's length. */
 const LEVEL_SHARE = 1 / 40;
 

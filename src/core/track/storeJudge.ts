@@ -9,7 +9,7 @@ import {
 import { ownOf } from './judgeOwn.js';
 import { guessLeft } from './judgeStart.js';
 import { judgeSwaps } from './judgeSwap.js';
-import { type Candidate, innovation, type JudgeWork } from './judgeWork.js';
+import { type Candidate, innovation, type JudgeWork, SHARE_SIGMA } from './judgeWork.js';
 import type { AcceptedReading } from './readingUpdate.js';
 import { plausibleRange } from './storeStart.js';
 import type { StoreModel, StoreState } from './storeTracker.js';
@@ -19,9 +19,6 @@ export const memoryOf = (state: StoreState, c: Candidate): SensorMemory =>
   state.sensors[c.tube]?.[c.sensor] as SensorMemory;
 
 export type Accepted = AcceptedReading & { readonly tube: number };
-
-/** Junctions see any share of the gas from none to all, evenly spread: 1/sqrt(12). */
-const SHARE_SIGMA = 0.29;
 
 /** Judges every thermocouple; returns those whose reading may be used, with their variances. */
 export function judgeAll(

@@ -301,15 +301,22 @@ export class Rewinder {
     if (late > 0) this.await(id);
   }
 
-  /** It is begun again; what is there by now stays. */
-  private notRemade(runner: UnitRunner, thrown: unknown): void {
-    const { counters, notices, history } = this.options;
-    const { id } = runner.unit;
+  /** The job of a unit has failed, so many times in a row by now. */
+  private countFailure(unit: string, thrown: unknown): number {
+    const { counters } = this.options;
     this.job = null;
     counters.add('rewind_failures');
     counters.failed(thrown);
-    const times = (this.failures.get(id) ?? 0) + 1;
-    this.failures.set(id, times);
+    const times = (this.failures.get(unit) ?? 0) + 1;
+    this.failures.set(unit, times);
+    return times;
+  }
+
+  /** It is begun again; what is there by now stays. */
+  private notRemade(runner: UnitRunner, thrown: unknown): void {
+    const { notices, history } = this.options;
+    const { id } = runner.unit;
+    const times = this.countFailure(id, thrown);
     const isOver = times >= MOST_FAILURES && !isStoreTrouble(thrown);
     if (!isOver) this.lost.add(runner);
     else {
@@ -328,11 +335,7 @@ export class Rewinder {
   private failed(runner: UnitRunner, thrown: unknown): void {
     const { counters, notices, history } = this.options;
     const { id } = runner.unit;
-    this.job = null;
-    counters.add('rewind_failures');
-    counters.failed(thrown);
-    const times = (this.failures.get(id) ?? 0) + 1;
-    this.failures.set(id, times);
+    const times = this.countFailure(id, thrown);
     let next = 'tries again';
     const isNoted = this.options.entering.flushLate(id);
     if (times < MOST_FAILURES || isStoreTrouble(thrown) || !isNoted) this.await(id);

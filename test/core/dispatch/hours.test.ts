@@ -55,6 +55,30 @@ describe('hours at a power', () => {
     );
   });
 
+  it('are worked out however little is known of the rock: none gets colder than can be', () => {
+    fc.assert(
+      fc.property(
+        share,
+        power,
+        fc.double({ min: 1, max: 300, noNaN: true }),
+        (at, power_W, times) => {
+          const input = inputOf(unit, watchedUnit(unit, { hot: at, cold: at }, 1));
+          for (const state of input.states)
+            for (const { covariance } of state.tubes)
+              covariance.forEach((value, i) => {
+                covariance[i] = value * times ** 2;
+              });
+          const { p90, p50, p10 } = computeHours(input, power_W).hours;
+          expect(p90).toBeGreaterThanOrEqual(0);
+          expect(p90).toBeLessThanOrEqual(p50);
+          expect(p50).toBeLessThanOrEqual(p10);
+          expect(Number.isFinite(p10)).toBe(true);
+        },
+      ),
+      { numRuns: 25 },
+    );
+  });
+
   it('are more with more charge in both stores', () => {
     let before = 0;
     for (const at of [0.35, 0.5, 0.65, 0.8, 0.95]) {

@@ -1,21 +1,12 @@
 import { join } from 'node:path';
-import { afterEach, describe, expect, it } from 'vitest';
+import { describe, expect, it } from 'vitest';
 import type { JournalReading } from '../../../src/adapters/history/journal.js';
 import { damageTables } from '../damage.js';
 import { PERIOD_MS } from '../site.js';
-import { Rig, type RigOptions, reading } from './rig.js';
+import { type Rig, reading, rigsOfTests } from './rig.js';
 
 const START = Date.UTC(2026, 0, 5, 6);
-const rigs: Rig[] = [];
-afterEach(() => {
-  for (const rig of rigs.splice(0)) rig.stop();
-});
-
-async function started(options: RigOptions = {}): Promise<Rig> {
-  const rig = new Rig(options);
-  rigs.push(rig);
-  return rig.start();
-}
+const { rigs, started } = rigsOfTests();
 
 const timeOf = (scan: number, ms: number) => START + scan * PERIOD_MS + ms;
 

@@ -1,25 +1,16 @@
 import SQLite from 'better-sqlite3';
-import { afterEach, describe, expect, it } from 'vitest';
+import { describe, expect, it } from 'vitest';
 import type { JournalReading } from '../../../src/adapters/history/journal.js';
 import type { WatchEvent } from '../../../src/core/watch/event.js';
 import type { Core } from '../../../src/daemon/core.js';
 import { waitFor } from '../../support/wait.js';
 import { fakeCore } from '../fakeCore.js';
 import { PERIOD_MS, smallUnit } from '../site.js';
-import { Rig, type RigOptions, reading } from './rig.js';
+import { Rig, reading, rigsOfTests } from './rig.js';
 
 const START = Date.UTC(2026, 0, 5, 6);
 const HOUR = 3_600_000;
-const rigs: Rig[] = [];
-afterEach(() => {
-  for (const rig of rigs.splice(0)) rig.stop();
-});
-
-async function started(options: RigOptions = {}): Promise<Rig> {
-  const rig = new Rig(options);
-  rigs.push(rig);
-  return rig.start();
-}
+const { rigs, started } = rigsOfTests();
 
 const timeOf = (scan: number, ms = 200) => START + scan * PERIOD_MS + ms;
 

@@ -1,4 +1,5 @@
 import { join } from 'node:path';
+import { afterEach } from 'vitest';
 import { History } from '../../../src/adapters/history/history.js';
 import { Journal, type JournalReading } from '../../../src/adapters/history/journal.js';
 import type { SetAside } from '../../../src/adapters/history/setAside.js';
@@ -159,4 +160,18 @@ export function reading(
   unit = 'u',
 ): JournalReading {
   return { unit, channel, time_ms, arrival_ms, value, quality: 'good' };
+}
+
+/** Starts rigs that are stopped after each test; to be called once in a file. */
+export function rigsOfTests(): { rigs: Rig[]; started(options?: RigOptions): Promise<Rig> } {
+  const rigs: Rig[] = [];
+  afterEach(() => {
+    for (const rig of rigs.splice(0)) rig.stop();
+  });
+  const started = (options: RigOptions = {}): Promise<Rig> => {
+    const rig = new Rig(options);
+    rigs.push(rig);
+    return rig.start();
+  };
+  return { rigs, started };
 }

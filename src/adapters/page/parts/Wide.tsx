@@ -1,5 +1,6 @@
 import type { ComponentChildren } from 'preact';
 import { useLayoutEffect, useRef, useState } from 'preact/hooks';
+import { watchExtent } from './watchExtent.js';
 
 /** What is cut off by less is seen [px]. */
 const EDGE_PX = 4;
@@ -24,15 +25,8 @@ export function Wide({
       const { scrollWidth, clientWidth, scrollLeft } = element;
       setMore(scrollWidth - clientWidth - scrollLeft > EDGE_PX);
     };
-    const watch = new ResizeObserver(look);
-    for (const one of [element, ...element.children]) watch.observe(one);
-    element.addEventListener('scroll', look, { passive: true });
-    look();
-    return () => {
-      watch.disconnect();
-      element.removeEventListener('scroll', look);
-    };
-  }, []);
+    return watchExtent(element, look);
+  });
   return (
     <div class="wide-place">
       {/* Whoever has the page read hears all columns. */}

@@ -1,5 +1,6 @@
 import type { RefObject } from 'preact';
 import { useEffect, useState } from 'preact/hooks';
+import { watchExtent } from '../../parts/watchExtent.js';
 
 /** What is cut off by less is seen [px]. */
 const EDGE_PX = 6;
@@ -21,14 +22,7 @@ export function EventsBelow({ list }: { list: RefObject<HTMLElement | null> }) {
       setBelow(boxes.filter(({ top }) => top > edge - EDGE_PX).length);
       setCut(boxes.some(({ bottom }) => bottom > edge + EDGE_PX));
     };
-    const watch = new ResizeObserver(look);
-    for (const one of [element, ...element.children]) watch.observe(one);
-    element.addEventListener('scroll', look, { passive: true });
-    look();
-    return () => {
-      watch.disconnect();
-      element.removeEventListener('scroll', look);
-    };
+    return watchExtent(element, look);
   });
   if (!cut) return null;
   return (
