@@ -186,7 +186,7 @@ export function indicatorRaised(view: IndicatorView, causes: readonly CauseView[
   const cause = causes.find((one) => one.subject === store || CAUSES[one.cause].of === 'unit');
   if (cause === undefined) return view.sentence;
   const sure = `${Math.round(100 * cause.probability)} %`;
-  const waiting = waitingFor(view, causes);
+  const waiting = waitingFor(view, causes).map((kind) => kind.replaceAll('_', ' '));
   const follows =
     waiting.length === 0
       ? ''

@@ -63,7 +63,7 @@ describe('what only follows from a cause that is told', () => {
     expect(short).toEqual(['heat_transfer_low cold raised']);
     expect(events[0]!.message).toContain(CAUSES.dust_or_fines.words);
     expect(events[0]!.message).toMatch(
-      /no alert of its own while this one stands: front_spread, energy_lost, /,
+      /no alert of its own while this one stands: front spread, energy lost, /,
     );
     // Also where all is decided within the same scan.
     expect(run(dust).short).toEqual(['heat_transfer_low cold raised']);
@@ -170,7 +170,7 @@ describe('pressure drops that are high by a flow meter', () => {
       '11 front_travel_off cold raised',
       '11 front_travel_off hot raised',
     ]);
-    expect(events[0]!.message).toMatch(/no alert of its own .*pressure_drop_high/);
+    expect(events[0]!.message).toMatch(/no alert of its own .*pressure drop high/);
   });
 
   it('are told after a day where nothing tells', () => {
