@@ -96,6 +96,8 @@ export function takeIn(model: UnitModel, state: UnitState, raw: Scan): Taken {
       scan.values,
       scan.time_ms,
       state.unknownTravel_m[s] as number,
+      // Drawn anew in this scan, or in the last one where its turn comes after this store's.
+      state.stores.some((other, o) => o !== s && other.started && other.settled === 0),
     );
     followOrigin(store, storeState, step === 'reacquired');
     const energy = storeEnergy(store, storeState);

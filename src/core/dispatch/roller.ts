@@ -1,6 +1,7 @@
 import { type BedWork, createBedWork } from '../bed/kernel.js';
 import { enthalpyAt, temperatureAt } from '../bed/tables.js';
 import { cellCentres } from '../track/storeEstimate.js';
+import { plausibleRange } from '../track/storeStart.js';
 import type { StoreModel, StoreState } from '../track/storeTracker.js';
 import { type Stream, streamsOf } from '../track/streams.js';
 import type { TubeModel } from '../track/tube.js';
@@ -137,13 +138,19 @@ export function createRoller(input: HoursInput, power_W: number): Roller {
   };
 }
 
-/** Another plant's store: the layers at the wall, after the tubes, move with the tube beside them. */
+/**
+ * Another plant's store: the layers at the wall, after the tubes, move with the tube beside them. No rock
+ * gets beyond what the plant can produce: where the front may be anywhere that bounds it, not its sigma.
+ */
 function shifted(
   model: StoreModel,
   store: RolloutStore,
   shifts_K: readonly Float64Array[],
   flow: number,
 ): RolloutStore {
+  const [low, high] = plausibleRange(model);
+  const within = (before: number, after: number): number =>
+    Math.min(Math.max(before, high), Math.max(Math.min(before, low), after));
   return {
     ...store,
     tubes: store.tubes.map((tube, k) => {
@@ -151,9 +158,10 @@ function shifted(
       return {
         ...tube,
         flowFactor: tube.flowFactor * Math.exp(flow),
-        enthalpy: tube.enthalpy.map((h, i) =>
-          enthalpyAt(model.tables, temperatureAt(model.tables, h) + (by[i] as number)),
-        ),
+        enthalpy: tube.enthalpy.map((h, i) => {
+          const before = temperatureAt(model.tables, h);
+          return enthalpyAt(model.tables, within(before, before + (by[i] as number)));
+        }),
       };
     }),
   };

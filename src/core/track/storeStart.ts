@@ -1,7 +1,8 @@
 import { isBelieved, judgeSensor, type SensorMemory } from './judge.js';
+import { isSparse, startAlongPath } from './pathStart.js';
 import { type StartReading, startTube } from './start.js';
 import type { StoreModel, StoreState } from './storeTracker.js';
-import type { TubeState } from './tube.js';
+import type { TubeDrive, TubeState } from './tube.js';
 import { resetWall } from './wallZone.js';
 
 /** Temperatures that the plant can produce, with room for its excursions [K]. */
@@ -60,12 +61,19 @@ export function usableReadings(
 /** For this long a profile that was drawn anew is no measure of a slow drift: the passage of a front. */
 const GUESS_MS = 3 * 3600_000;
 
-/** Draws every tube's profile anew through its readings (through all strings' where it has too few). */
+/**
+ * Draws every tube's profile anew from its readings (from all strings' where it has too few): where they
+ * stand far apart, as a past of charging or discharging would have left it; else, and where no such
+ * past explains them, by lines through them.
+ *
+ * @param drive of the scan; null where there is no profile that could have moved, or no saying how
+ */
 export function restart(
   model: StoreModel,
   state: StoreState,
   time_ms: number,
   inflate: number,
+  drive: TubeDrive | null,
 ): void {
   const readings = usableReadings(model, state, time_ms);
   model.tubes.forEach((tube, k) => {
@@ -77,7 +85,12 @@ export function restart(
       value_K: r.value_K,
       sensor: r.tube === k ? r.sensor : -1,
     }));
-    startTube(tube, state.tubes[k] as TubeState, start, inflate);
+    const tubeState = state.tubes[k] as TubeState;
+    const along =
+      drive !== null &&
+      isSparse(start, model.store.bed.length_m) &&
+      startAlongPath(tube, tubeState, start, drive);
+    if (!along) startTube(tube, tubeState, start, inflate);
     if (model.wall?.tube === k && state.wall !== null) {
       resetWall(model.tables, state.wall, state.tubes[k] as TubeState);
     }
@@ -90,6 +103,8 @@ export function restart(
     if (inflate > 1) memory.guess_ms = time_ms + GUESS_MS;
   }
   state.missed = 0;
+  state.astray = 0;
+  state.displaced.fill(null);
   state.settled = 0;
   state.known_s = 0;
   state.used = readings.length;

@@ -49,6 +49,8 @@ export interface StoreState {
   readonly displaced: (Displaced | null)[];
   /** Scans in a row in which most readings stood outside the gate. */
   missed: number;
+  /** How far off the state of charge may be meanwhile [-]; absent in a state saved before there was this. */
+  astray?: number;
   /** Time since the profile was last drawn anew [s]. */
   known_s: number;
   /** Scans since the profile was last re-acquired, capped. */
@@ -91,6 +93,7 @@ export function startStore(model: StoreModel): StoreState {
     started: false,
     origin_m: 0,
     missed: 0,
+    astray: 0,
     known_s: 0,
     settled: 0,
     used: 0,
@@ -110,6 +113,7 @@ const LOST_TRAVEL_M = 0.25;
  *
  * @param drive null before the first scan (nothing to predict over)
  * @param unknownTravel_m one-sigma travel that no flow reading covered since readings stopped [m]
+ * @param otherAnew another store through which the same gas flows has just been found elsewhere
  */
 export function stepStore(
   model: StoreModel,
@@ -118,6 +122,7 @@ export function stepStore(
   values: Float64Array,
   time_ms: number,
   unknownTravel_m: number,
+  otherAnew = false,
 ): StoreStep {
   rememberReadings(model, state, values, time_ms);
   state.used = 0;
@@ -126,7 +131,7 @@ export function stepStore(
     const readings = usableReadings(model, state, time_ms);
     rememberStart(model, state, values, time_ms);
     if (readings.length < 2) return 'not_started';
-    restart(model, state, time_ms, 1);
+    restart(model, state, time_ms, 1, null);
     state.started = true;
     return 'reacquired';
   }
@@ -150,9 +155,25 @@ export function stepStore(
       if (before !== null) shareAround(model.wall, state.tubes, before);
     }
   }
-  if (unknownTravel_m > LOST_TRAVEL_M && usableReadings(model, state, time_ms).length >= 3) {
-    restart(model, state, time_ms, REACQUIRE_INFLATION);
+  const enough = usableReadings(model, state, time_ms).length >= 3;
+  // In a gap it may have gone there and back: lines between readings assume no way.
+  if (unknownTravel_m > LOST_TRAVEL_M && enough) {
+    restart(model, state, time_ms, REACQUIRE_INFLATION, null);
+    return 'reacquired';
+  }
+  if (otherAnew && enough && isBlindBetween(model, state)) {
+    restart(model, state, time_ms, REACQUIRE_INFLATION, drive);
     return 'reacquired';
   }
   return updateStore(model, state, values, time_ms, drive);
 }
+
+/** Too soon after it was drawn anew itself to be drawn anew for another store. */
+const SETTLED_LEAST = 10;
+
+/**
+ * Whether a front may be elsewhere without most readings showing it: an only string. What moved the
+ * front of another store unseen has moved this one's.
+ */
+const isBlindBetween = (model: StoreModel, state: StoreState): boolean =>
+  model.tubes.length === 1 && state.settled > SETTLED_LEAST;

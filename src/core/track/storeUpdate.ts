@@ -58,19 +58,20 @@ export function updateStore(
   if (judgeGroups(model, state, work, usable, time_ms)) predictReadings(model, state, work);
   const sound = candidates.filter(usable);
   const outside = sound.filter((c) => Math.abs(innovation(c)) > GATE_SIGMAS * c.sigma_K);
-  const least = Math.max(2, Math.min(MISS_LEAST, sound.length));
-  if (outside.length >= least && outside.length > MISS_SHARE * sound.length) {
+  if (isLost(model, state, sound, outside)) {
     // Most readings miss: the estimate is in doubt, not the sensors, so the verdicts stay.
     state.missed++;
+    state.astray = astrayShare(model, sound);
     if (state.missed < MISS_SCANS) return 'missed';
-    restart(model, state, time_ms, REACQUIRE_INFLATION);
+    restart(model, state, time_ms, REACQUIRE_INFLATION, drive);
     return 'reacquired';
   }
   state.missed = 0;
+  state.astray = 0;
   const elsewhere = findDisplaced(model, state, work, drive);
   if (elsewhere === 'open') return 'missed';
   if (elsewhere === 'confirmed') {
-    restart(model, state, time_ms, REACQUIRE_INFLATION);
+    restart(model, state, time_ms, REACQUIRE_INFLATION, drive);
     return 'reacquired';
   }
   if (widenGuesses(model, state, work, drive, time_ms)) predictReadings(model, state, work);
@@ -107,6 +108,41 @@ export function updateStore(
   rememberExpected(model, state, work);
   state.used = accepted.length;
   return state.used > 0 ? 'updated' : 'predicted';
+}
+
+/**
+ * Whether the readings outside the gate are too many for sensors at fault. On an only string a front
+ * that is elsewhere is seen by few: there two are enough that leave the gate in the same scan, unless
+ * each reads what the other should.
+ */
+function isLost(
+  model: StoreModel,
+  state: StoreState,
+  sound: readonly Candidate[],
+  outside: readonly Candidate[],
+): boolean {
+  const least = Math.max(2, Math.min(MISS_LEAST, sound.length));
+  if (outside.length >= least && outside.length > MISS_SHARE * sound.length) return true;
+  if (model.tubes.length > 1 || outside.length < MISS_SHARE * sound.length) return false;
+  const anew = outside.filter((c) => memoryOf(state, c).outside === 0);
+  return anew.length > 1 && !(anew.length === 2 && areExchanged(anew as [Candidate, Candidate]));
+}
+
+function areExchanged([a, b]: readonly [Candidate, Candidate]): boolean {
+  const reads = (c: Candidate, other: Candidate): boolean =>
+    Math.abs(c.value_K - other.reading.value_K) <= GATE_SIGMAS * other.sigma_K;
+  return reads(a, b) && reads(b, a);
+}
+
+/**
+ * How far off the state of charge may be while the estimate is lost, as the readings themselves say:
+ * their mean deviation over the span, and half of the way from one to the next [-].
+ */
+function astrayShare(model: StoreModel, sound: readonly Candidate[]): number {
+  const span = model.store.reference_hot_K - model.store.reference_cold_K;
+  const off = sound.reduce((sum, c) => sum + Math.abs(innovation(c)), 0) / sound.length;
+  const perTube = sound.length / model.tubes.length;
+  return off / Math.abs(span) + 0.5 / perTube;
 }
 
 /** Verdicts on sensors that were used for a while after they had gone wrong. */

@@ -50,6 +50,7 @@ export function unseenSigma(model: StoreModel, state: StoreState): number {
     UNSEEN_FLOW * way * Math.sqrt(squares),
     wallSigma(model, state, way),
     displacedSigma(model, state),
+    state.astray ?? 0,
   );
 }
 
