@@ -8,8 +8,8 @@
  * Truths and results are kept in .score: a run that was stopped goes on where it was, and a run
  * after a change of the estimator needs no new truths. --tuning takes seeds 1, 2, ... instead of
  * those for scoring and no fresh ones. --strict ends with code 1 where a goal is missed. --quick takes
- * two seeds and short scenarios, and ends with code 1 where a goal for each single run is missed that
- * is not among the known ones; --brief leaves the table out. All figures also stand in .score/latest.json.
+ * two tuning seeds and short scenarios, and ends with code 1 where a goal for each single run is missed that
+ * is not among the known ones, or beyond what is known of it; --brief leaves the table out. All figures also stand in .score/latest.json.
  * `watch` among --only stands for the watch's own score (npm run score:watch), which comes last, with
  * at most 20 seeds.
  */
@@ -52,6 +52,7 @@ const fresh = freshCount > 0 ? freshSeeds(freshCount, Date.now()) : [];
 if (fresh.length > 0) console.log(`fresh seeds of this run: ${fresh.join(', ')}`);
 
 const started = performance.now();
+const firstLine = (text: string): string => text.split('\n', 1)[0]!;
 const hashes = {
   truth: await truthHash(),
   results: await resultHashes(scenarios.map((s) => s.code)),
@@ -139,11 +140,13 @@ const estimated = blocksOf(
 const blocks = [...(scenarios.length > 0 ? estimated : []), ...(watched?.blocks ?? [])];
 if (!values.brief) process.stdout.write(tableText(blocks));
 if (!values.brief && watched !== null) console.log(`\n${watched.text}`);
+const broken = failures.length + (watched?.failures.length ?? 0);
 const marked = blocks.flatMap((block) => block.figures.filter((f) => f.met !== null));
 const missed = marked.filter((f) => f.met === false);
 const seconds = Math.round((performance.now() - started) / 1000);
 console.log(
-  `\n${marked.length - missed.length} goals met, ${missed.length} missed; ` +
+  `\n${marked.length - missed.length} goals met, ${missed.length} missed` +
+    `${broken > 0 ? `, and ${broken} runs that ended by an error, which miss all of theirs` : ''}; ` +
     `${jobs.length} of ${all.length} runs anew in ${seconds} s, ` +
     `${Object.values(cpu_s)
       .reduce((a, b) => a + b, 0)
@@ -164,7 +167,12 @@ writeFileSync(
   `${JSON.stringify(record, null, 1)}\n`,
 );
 if (fresh.length > 0 && failures.length === 0) seedsDone();
-const broken = failures.length + (watched?.failures.length ?? 0);
+for (const { job, error } of failures) {
+  console.log(`FAILED: ${job.scenario} with seed ${job.seed}: ${firstLine(error)}`);
+}
+for (const { job, error } of watched?.failures ?? []) {
+  console.log(`FAILED: watch, ${job.kind} with seed ${job.seed}: ${firstLine(error)}`);
+}
 let failed = broken > 0 || (values.strict && missed.length > 0);
 if (values.quick) {
   const misses = missesOf(blocks);

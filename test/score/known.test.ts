@@ -6,7 +6,7 @@ import { QUICK } from '../../tools/score/scenarios.js';
 const block = (...figures: ReturnType<typeof figure>[]) => [
   { scenario: 'quick-cycle', row: 'all-class', title: '', seeds: 2, figures },
 ];
-const list = [{ row: 'quick-cycle all-class', figure: 'slow', reason: 'it is known' }];
+const list = [{ row: 'quick-cycle all-class', figure: 'slow', reason: 'it is known', most: 3 }];
 
 describe('a quick run', () => {
   it('fails by a goal for each run that is missed and not known', () => {
@@ -23,6 +23,15 @@ describe('a quick run', () => {
     const met = missesOf(block(figure('  slow', 0, '', goal)), list);
     expect(met).toMatchObject({ unknown: [], known: [] });
     expect(met.met).toHaveLength(1);
+  });
+
+  it('fails by a known miss that has grown beyond what is known of it, or could not be had', () => {
+    const goal = { most: 1, each: true };
+    for (const value of [3.1, Number.POSITIVE_INFINITY, null]) {
+      const { known, unknown } = missesOf(block(figure('slow', value, '', goal)), list);
+      expect(known).toEqual([]);
+      expect(unknown[0]).toContain('known up to 3');
+    }
   });
 
   it('does not fail by a goal that only many runs together can keep', () => {

@@ -2,7 +2,7 @@ import { describe, expect, it } from 'vitest';
 import { figure } from '../../tools/score/figure.js';
 import { commonFigures, pooled } from '../../tools/score/figures.js';
 import { SCENARIOS } from '../../tools/score/scenarios.js';
-import { rmsOf, tally } from '../../tools/score/tally.js';
+import { addError, emptySum, mergeSum, rmsOf, tally, worstOf } from '../../tools/score/tally.js';
 import { syntheticSeries } from './syntheticSeries.js';
 
 /** Wrong by 3 % in the first hour, then by -0.2 % and +0.4 % in turn, with a sigma of 0.2 %. */
@@ -64,6 +64,48 @@ describe('the tally of one run', () => {
       { sensor: 'hot_axis_03', verdict: 'offset', from_h: 91 / 60, to_h: 131 / 60 },
     ]);
     expect(result.own).toEqual({ extra: 1 });
+  });
+});
+
+describe('an error that is no finite number', () => {
+  it('is counted, and leaves no rms that could meet a goal', () => {
+    const at = () => 'seed 1';
+    const sum = emptySum();
+    addError(sum, 0.5, at);
+    expect([rmsOf(sum), worstOf(sum)]).toEqual([0.5, 0.5]);
+    addError(sum, Number.NaN, at);
+    expect(sum).toMatchObject({ n: 1, broken: 1 });
+    const other = emptySum();
+    addError(other, -0.1, at);
+    mergeSum(other, sum);
+    for (const value of [rmsOf(other), worstOf(other)]) {
+      expect(figure('error', value, '', { most: 1 }).met).toBe(false);
+    }
+    expect(rmsOf(emptySum())).toBeNull();
+  });
+});
+
+describe('cases in which no hours were left', () => {
+  const scenario = SCENARIOS.find((s) => s.id === 'nominal')!;
+  const row = scenario.rows.find((r) => r.id === 'all-independent')!;
+  const asked = (p90: number) =>
+    [
+      { scan: 100, truth_h: 4, p90: 3.5, p50: 3.9, p10: 4.3 },
+      { scan: 160, truth_h: 0, p90, p50: 0.2, p10: 0.5 },
+    ].map((h) => ({ ...h, power_W: 1e6, line_h: h.truth_h + 2 }));
+  const value = (p90: number, name: string) => {
+    const run = tally(syntheticSeries(240, point, { hours: asked(p90) }), 7);
+    const figures = commonFigures(scenario, row, [run], { rated_h: 6, fresh: [] });
+    return figures.find((f) => f.name.trim() === name)!.value;
+  };
+
+  it('are no hits, and misses where hours were firm', () => {
+    expect(value(0, 'truth below p90')).toBe(0);
+    expect(value(0, 'truth inside p90..p10')).toBe(100);
+    expect(value(0.1, 'truth below p90')).toBe(50);
+    expect(value(0.1, 'truth inside p90..p10')).toBe(50);
+    expect(value(0, 'p90 above zero where truth is zero')).toBe(0);
+    expect(value(0.1, 'p90 above zero where truth is zero')).toBe(1);
   });
 });
 

@@ -1,7 +1,15 @@
 import { type Figure, figure, type Goal, rms } from './figure.js';
 import type { RowPlan, Scenario } from './scenario.js';
 import { bestShiftedPinball, binomialInterval, pinball } from './statistics.js';
-import { type HoursSample, mergeSum, type RowResult, rmsOf, type Sum, sumOf } from './tally.js';
+import {
+  type HoursSample,
+  mergeSum,
+  type RowResult,
+  rmsOf,
+  type Sum,
+  sumOf,
+  worstOf,
+} from './tally.js';
 import { unsoundFigures } from './unsound.js';
 
 /** Truth over sigma as rms. */
@@ -82,9 +90,9 @@ function chargeFigures(
 ): Figure[] {
   const goals = goalsOf(scenario, row);
   const only = typeof scenario.goals === 'object' ? { most: scenario.goals.soc_rms } : null;
-  const worstOf = (name: string, words: string, goal: Goal | null) => {
+  const worstFigure = (name: string, words: string, goal: Goal | null) => {
     const sum = sums[name];
-    return figure(words, sum ? Math.abs(sum.worst) : null, '%', goal, sum?.at);
+    return figure(words, worstOf(sum), '%', goal, sum?.at);
   };
   const note = (name: string) => {
     const value = rmsOf(fresh[name]);
@@ -112,13 +120,13 @@ function chargeFigures(
       ];
   return [
     ...own,
-    worstOf(
+    worstFigure(
       'soc',
       'state of charge, worst',
       goals && !apart ? { most: goals.soc[1], each: true } : null,
     ),
     figure('  straight lines, rms', rmsOf(sums['line soc']), '%'),
-    worstOf('line soc', '  straight lines, worst', null),
+    worstFigure('line soc', '  straight lines, worst', null),
     // What the estimate is wrong by, apart from what its strings do not see.
     figure('  estimate against the rock at the strings, rms', rmsOf(sums['soc/seen']), '%'),
     figure('  rock at the strings against the store, rms', rmsOf(sums['seen soc']), '%'),
@@ -199,9 +207,11 @@ function hoursFigures(
       sums['hours/sigma']?.at ?? '',
     ),
   ];
+  // Where no hours were left to be had, nothing told is right but no hit; something told is a miss.
+  const told = (r: RowResult) => r.hours.filter((h) => h.truth > 0 || h.p90 > 0);
   const within = (name: string, p: number, hit: (h: HoursSample) => boolean) => {
     const groups = results.map((r) => {
-      const cases = counted(r);
+      const cases = told(r);
       return { hits: cases.filter(hit).length, cases: cases.length };
     });
     const b = binomialInterval(p, groups);
@@ -216,6 +226,11 @@ function hoursFigures(
     within('truth below p90', 0.1, (h) => h.truth < h.p90),
     within('truth inside p90..p10', 0.8, (h) => h.truth >= h.p90 && h.truth <= h.p10),
   );
+  const none = results.flatMap((r) => r.hours.filter((h) => h.truth === 0));
+  const firm = none.filter((h) => h.p90 > 0).length;
+  if (none.length > 0) {
+    out.push(figure('  p90 above zero where truth is zero', firm, '', null, `of ${none.length}`));
+  }
   for (const [name, tau] of [
     ['p90', 0.1],
     ['p50', 0.5],

@@ -7,12 +7,17 @@ export interface Sum {
   squares: number;
   worst: number;
   at: string;
+  /** Errors that are no finite number: with one there is no rms that meets a goal. */
+  broken: number;
 }
 
-export const emptySum = (): Sum => ({ n: 0, squares: 0, worst: 0, at: '' });
+export const emptySum = (): Sum => ({ n: 0, squares: 0, worst: 0, at: '', broken: 0 });
 
 export function addError(sum: Sum, error: number, at: () => string): void {
-  if (!Number.isFinite(error)) return;
+  if (!Number.isFinite(error)) {
+    sum.broken++;
+    return;
+  }
   sum.n++;
   sum.squares += error * error;
   if (Math.abs(error) <= Math.abs(sum.worst)) return;
@@ -30,13 +35,23 @@ export function sumOf(sums: Record<string, Sum>, name: string): Sum {
 export const mergeSum = (into: Sum, from: Sum): void => {
   into.n += from.n;
   into.squares += from.squares;
+  into.broken += from.broken;
   if (Math.abs(from.worst) <= Math.abs(into.worst)) return;
   into.worst = from.worst;
   into.at = from.at;
 };
 
-export const rmsOf = (sum: Sum | undefined): number | null =>
-  sum && sum.n > 0 ? Math.sqrt(sum.squares / sum.n) : null;
+/** Null where there is none, infinite where an error was no finite number. */
+export function rmsOf(sum: Sum | undefined): number | null {
+  if (!sum || sum.n + sum.broken === 0) return null;
+  return sum.broken > 0 ? Number.POSITIVE_INFINITY : Math.sqrt(sum.squares / sum.n);
+}
+
+/** The worst error, as rmsOf. */
+export function worstOf(sum: Sum | undefined): number | null {
+  if (!sum || sum.n + sum.broken === 0) return null;
+  return sum.broken > 0 ? Number.POSITIVE_INFINITY : Math.abs(sum.worst);
+}
 
 /** One answer of hours against the truth, with what straight lines said. */
 export interface HoursSample {

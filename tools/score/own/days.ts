@@ -1,8 +1,25 @@
+import type { WeatherChange } from '../../../test/plant/faults.js';
+import { RandomStream } from '../../../test/plant/random.js';
 import { scheduleFor } from '../../../test/plant/schedules.js';
 import { base, cycle, day, H, row } from '../base.js';
 import { withKnownMachine } from '../knownMachine.js';
 import type { Scenario } from '../scenario.js';
 import { plain } from './plain.js';
+
+/**
+ * Warm and cold days: gas comes to the machine as warm as the coolers leave it, so that what enters the
+ * stores changes by some 2.4 times as much in the hot and 0.5 times in the cold one.
+ */
+function weatherOf(seed: number): WeatherChange[] {
+  const random = new RandomStream(seed, 'score week weather');
+  return [1, 2, 3, 4, 5].map((day) => ({
+    kind: 'weather',
+    at_s: (day + random.uniform(-0.3, 0.3)) * 24 * H,
+    // There and back, so that it stays within a season.
+    offset_K: (day % 2 === 1 ? 1 : -1) * random.uniform(4, 9),
+    ramp_s: random.uniform(2, 8) * H,
+  }));
+}
 
 /** Healthy plants on ordinary days, in a long week and at rest. */
 export const DAYS: readonly Scenario[] = [
@@ -27,11 +44,12 @@ export const DAYS: readonly Scenario[] = [
     ...base,
     id: 'week',
     code: 'days',
-    words: 'week of partial cycles',
+    words: 'week of partial cycles, power and inlet gas changing',
     truth: {
       id: 'week',
       machine: 'random',
       segments: (g) => scheduleFor('partial', g, 7 * 24 * H),
+      changes: weatherOf,
       hours_every_min: 180,
     },
     every: 3,

@@ -118,6 +118,12 @@ export const FAULT_KINDS: readonly FaultKind[] = [
     channel,
     value_K: 1573,
   })),
+  single('burst-down', 'burst downwards', ['burst'], 'at_once', 1, ANYWHERE, (channel) => ({
+    kind: 'burst',
+    at_s: AT_S,
+    channel,
+    value_K: 3,
+  })),
   single('stuck', 'stuck ahead of the front', ['stuck'], 'front', HALF_HOUR, AHEAD, (channel) => ({
     kind: 'stuck',
     at_s: AT_S,
