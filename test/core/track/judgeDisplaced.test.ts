@@ -55,24 +55,39 @@ describe.each([41, 42])('a reading far off the profile of an only string, seed %
     expect(worst).toBeLessThan(0.012);
   }, 60_000);
 
-  it('is the front where the estimate is three hours old', () => {
-    const old = startUnit(UNIT);
-    const [kept, from] = [2 * 60, 5 * 60];
-    for (const { time_s, readings } of scans.slice(0, kept)) {
-      advance(UNIT, old, scanOf(readings, time_s * 1000), ASK);
-    }
-    // The clock goes on from the old estimate, so that no gap tells of the three hours.
-    const state = restoreUnit(UNIT, saveUnit(old));
-    const shift_ms = (scans[from]!.time_s - scans[kept]!.time_s) * 1000;
-    let last: Estimate | null = null;
-    for (const { time_s, readings } of scans.slice(from, from + 50)) {
-      last = advance(UNIT, state, scanOf(readings, time_s * 1000 - shift_ms), ASK).estimate;
-    }
-    for (const { id } of UNIT.stores) {
-      expect(named(last!, id)).toEqual([]);
-      const { soc_sigma } = last!.stores[id]!;
-      expect(error(last!, from + 49, id)).toBeLessThan(Math.max(0.012, 2.5 * soc_sigma));
-      expect(soc_sigma).toBeLessThan(0.06);
-    }
-  }, 60_000);
+  it.each([
+    ['three hours old', 2, 5],
+    ['an hour old', 3, 4],
+    ['that of three hours later', 5, 2],
+  ])(
+    'is the front where the estimate is %s',
+    (_, kept_h, from_h) => {
+      const old = startUnit(UNIT);
+      const [kept, from] = [kept_h * 60, from_h * 60];
+      for (const { time_s, readings } of scans.slice(0, kept)) {
+        advance(UNIT, old, scanOf(readings, time_s * 1000), ASK);
+      }
+      // The clock goes on from the old estimate, so that no gap tells of the three hours.
+      const state = restoreUnit(UNIT, saveUnit(old));
+      const shift_ms = (scans[from]!.time_s - scans[kept]!.time_s) * 1000;
+      let last: Estimate | null = null;
+      let seen = 0;
+      for (const { time_s, readings } of scans.slice(from, from + 50)) {
+        last = advance(UNIT, state, scanOf(readings, time_s * 1000 - shift_ms), ASK).estimate;
+        // By the third scan it is known to be lost; from then on sigma says by how much it may be off.
+        if (++seen < 3) continue;
+        for (const { id } of UNIT.stores) {
+          const off = error(last, from + seen - 1, id) / last.stores[id]!.soc_sigma;
+          expect(off, `${id}, scan ${seen}`).toBeLessThan(3);
+        }
+      }
+      for (const { id } of UNIT.stores) {
+        expect(named(last!, id)).toEqual([]);
+        const { soc_sigma } = last!.stores[id]!;
+        expect(error(last!, from + 49, id)).toBeLessThan(Math.max(0.012, 2.5 * soc_sigma));
+        expect(soc_sigma).toBeLessThan(0.06);
+      }
+    },
+    60_000,
+  );
 });
