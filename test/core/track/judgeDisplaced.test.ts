@@ -55,11 +55,10 @@ describe.each([41, 42])('a reading far off the profile of an only string, seed %
     expect(worst).toBeLessThan(0.012);
   }, 60_000);
 
-  it.each([
-    ['three hours old', 2, 5],
-    ['an hour old', 3, 4],
-    ['that of three hours later', 5, 2],
-  ])(
+  const stale: [words: string, kept_h: number, from_h: number][] = [['three hours old', 2, 5]];
+  // Once each, for what they take.
+  if (seed === 41) stale.push(['an hour old', 3, 4], ['that of three hours later', 5, 2]);
+  it.each(stale)(
     'is the front where the estimate is %s',
     (_, kept_h, from_h) => {
       const old = startUnit(UNIT);
