@@ -96,7 +96,8 @@ export function gasLimit_K(model: StoreModel): number {
  * again has passed; and where the machine's model, too, is nearer to the rock. Rock at depth d, with
  * gas lagging by l = G cf/hv, is within exp(-(sqrt Y - sqrt(d/l))^2) of a step of the gas, Y = S/(C l),
  * S the heat capacity of the gas that has passed (tail of Schumann's solution, by Chernoff's bound).
- * It ceases to be doubtful where the same rock is within half of that limit.
+ * It ceases to be doubtful where rock swept so, with the heat transfer that is believed or, where it has
+ * been found worse since, the configured one, is within half of that limit.
  */
 export function stepGas(
   model: StoreModel,
@@ -127,7 +128,7 @@ export function stepGas(
   const capacity = flux * (tables.fluidHeatCapacity[segment] as number);
   memory.swept_J_m2K += capacity * dt_s;
 
-  const rock = sweptRock(model, state, end, memory.swept_J_m2K, scan.values);
+  const rock = sweptRock(model, state, end, memory, scan.values);
   const limit = least + lossOnTheWay_K(model, end, rock.depth_m, capacity, scan);
   const agreeing = rock.values.filter((value) => Math.abs(value - middle(rock.values)) < limit / 2);
   if (agreeing.length < 2 || 2 * agreeing.length <= rock.values.length) return;
@@ -164,7 +165,7 @@ function sweptRock(
   model: StoreModel,
   state: StoreState,
   end: StoreEnd,
-  swept_J_m2K: number,
+  { swept_J_m2K, doubtful }: GasMemory,
   readings: Float64Array,
 ): { values: number[]; depth_m: number } {
   const { bed } = model.store;
@@ -176,14 +177,17 @@ function sweptRock(
   if (!(passed > 0)) return { values, depth_m: deepest };
   model.tubes.forEach((tube, k) => {
     const { cells } = tube.layout;
-    const { gasLag_m } = state.tubes[k] as TubeState;
+    const { gasLag_m, further } = state.tubes[k] as TubeState;
+    // What a wrong gas temperature has made of the heat transfer does not keep the doubt.
+    const learned = Math.exp(further[tube.layout.transfer - cells] as number);
+    const shorter = doubtful ? Math.min(1, learned) : 1;
     tube.string.thermocouples.forEach(({ position_m }, s) => {
       const depth = end === 'charge_inlet' ? position_m : bed.length_m - position_m;
       const cell = Math.min(
         cells - 1,
         Math.max(0, Math.floor((position_m / bed.length_m) * cells)),
       );
-      const lag = Math.abs(gasLag_m[cell] as number);
+      const lag = shorter * Math.abs(gasLag_m[cell] as number);
       const memory = state.sensors[k]?.[s];
       const value = (readings[model.channels[k]?.[s] as number] as number) - (memory?.shift_K ?? 0);
       if (!(lag > 0) || !Number.isFinite(value)) return;
