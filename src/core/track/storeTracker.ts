@@ -6,8 +6,8 @@ import { blankTube } from './start.js';
 import { rememberReadings, rememberStart, restart, usableReadings } from './storeStart.js';
 import { updateStore } from './storeUpdate.js';
 import {
-  createTubeScratch,
   predictTube,
+  sharedTubeScratch,
   type TubeDrive,
   type TubeModel,
   type TubeScratch,
@@ -73,7 +73,7 @@ export function storeModel(
     tubes,
     channels,
     deadbands_K,
-    scratch: tubes.map((tube) => createTubeScratch(tube.layout)),
+    scratch: tubes.map((tube, k) => sharedTubeScratch(tube.layout, k)),
     wall: wallModel(tables, tubes),
   };
 }

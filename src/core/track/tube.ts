@@ -100,6 +100,24 @@ export function tubeModel(
   };
 }
 
+/** Arrays of all stores' tubes, by size and place among a store's. */
+const shared = new Map<string, TubeScratch>();
+const MOST_SHARED = 256;
+
+/**
+ * Arrays for the k-th tube of a store. Stores share them, since a store's scan is worked off in one
+ * go: so much less memory for many units. Whoever stops amid one needs its own, `createTubeScratch`.
+ */
+export function sharedTubeScratch(layout: TubeLayout, k: number): TubeScratch {
+  const key = [layout.cells, layout.size, layout.sensors, k].join();
+  const known = shared.get(key);
+  if (known !== undefined) return known;
+  if (shared.size >= MOST_SHARED) shared.clear();
+  const scratch = createTubeScratch(layout);
+  shared.set(key, scratch);
+  return scratch;
+}
+
 export function createTubeScratch(layout: TubeLayout): TubeScratch {
   const cells = layout.cells;
   return {
