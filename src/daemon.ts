@@ -31,6 +31,7 @@ import {
   unreadyReasons,
 } from './daemon/health.js';
 import { Hourly } from './daemon/hourly.js';
+import { HoursOnStroke } from './daemon/hoursOnStroke.js';
 import { Housekeeping } from './daemon/housekeeping.js';
 import { futureTolerance, runnerMaker, unitPhases } from './daemon/makeRunners.js';
 import { MqttPart, type MqttPartOptions } from './daemon/mqttPart.js';
@@ -182,6 +183,7 @@ class RockhourDaemon implements Daemon {
     const entering = new Entering({ ...common, ...rules, ...tells, checkpoint_every_ms, phase });
     this.pipeline = new Pipeline({
       ...{ ...units, entering },
+      hours: new HoursOnStroke({ questions: this.questions, notices }),
       late: (runner, reading, isNew) => this.rewinder.note(runner, reading, isNew),
     });
     this.rewinder = new Rewinder({

@@ -8,9 +8,10 @@ import { zoneWords } from './clockWords.js';
 import type { Counters } from './counters.js';
 import type { Entering } from './entering.js';
 import { Feed, type UnitLine } from './feed.js';
+import type { HoursOnStroke } from './hoursOnStroke.js';
 import type { Notices } from './notices.js';
 import { restoreRunner } from './restore.js';
-import type { UnitRunner } from './unitRunner.js';
+import type { RunnerStep, UnitRunner } from './unitRunner.js';
 
 /** Work in one go, after which messages and questions have their turn [ms]. */
 const SLICE_MS = 25;
@@ -32,6 +33,7 @@ export interface PipelineOptions {
   readonly notices: Notices;
   readonly log: Log;
   readonly entering: Entering;
+  readonly hours: HoursOnStroke;
   /** A reading came when its scan was closed. */
   late(runner: UnitRunner, reading: ReadingEntry, isNew: boolean): void;
 }
@@ -80,6 +82,8 @@ export class Pipeline {
     this.scheduled = null;
     if (this.retry) clearTimeout(this.retry);
     this.retry = null;
+    // A state that is saved holds no scan that was not told.
+    this.options.hours.flush();
     for (const runner of this.options.runners) this.options.entering.save(runner, true);
     for (const resolve of this.idle.splice(0)) resolve();
   }
@@ -168,6 +172,7 @@ export class Pipeline {
       const line = lines[this.turn % lines.length]!;
       this.turn = (this.turn + 1) % lines.length;
       if (!line.mayStep && line.length === 0) continue;
+      if (this.options.hours.isHeld(line.runner)) continue;
       worked = true;
       this.turnOf(feed, line);
       if (performance.now() >= end) return true;
@@ -231,10 +236,10 @@ export class Pipeline {
   /** One scan of a unit that may have closed ones; false where it has none. */
   private step(line: UnitLine): boolean {
     const { runner } = line;
-    const { counters, entering } = this.options;
+    const { counters, hours } = this.options;
     const skipped = runner.skippedScans;
     try {
-      const step = runner.step();
+      const step = runner.step(hours.mayHold ? 'later' : 'now');
       if (!step) {
         line.mayStep = false;
         return false;
@@ -244,12 +249,28 @@ export class Pipeline {
       if (step.closed.reported === 0) counters.add('scans_empty');
       counters.add('scans_skipped', runner.skippedScans - skipped);
       if (step.step.counts) counters.addScan(step.step.counts);
-      this.failing.delete(runner.unit.id);
-      entering.enter(runner, step);
+      if (step.hoursDue) hours.hold(runner, step, (failure) => this.resume(runner, step, failure));
+      else this.enter(runner, step);
     } catch (thrown) {
       this.failed(runner, thrown);
     }
     return true;
+  }
+
+  private enter(runner: UnitRunner, step: RunnerStep): void {
+    this.failing.delete(runner.unit.id);
+    this.options.entering.enter(runner, step);
+  }
+
+  /** A step that was held has its hours, or there can be none. */
+  private resume(runner: UnitRunner, step: RunnerStep, failure: unknown): void {
+    try {
+      if (failure !== undefined) throw failure;
+      this.enter(runner, step);
+    } catch (thrown) {
+      this.failed(runner, thrown);
+    }
+    this.kick();
   }
 
   private failed(runner: UnitRunner, thrown: unknown): void {

@@ -30,6 +30,8 @@ export interface RunnerStep {
   readonly closed: ClosedScan;
   readonly step: UnitStep;
   readonly measured: Measured;
+  /** The unit's clock strikes for hours, and they are to be given with `giveHours`. */
+  readonly hoursDue: boolean;
 }
 
 /** Newest of everything that a unit tells. */
@@ -286,20 +288,21 @@ export class UnitRunner {
   /**
    * The next closed scan through the core; null where none is closed. Throws what the core throws.
    *
-   * @param withHours hours where the unit's clock strikes; they are no part of the state
+   * @param hours where the unit's clock strikes: computed now, only told to be due, or not at all; they
+   *   are no part of the state
    */
-  step(withHours = true): RunnerStep | null {
+  step(hours: 'now' | 'later' | 'none' = 'now'): RunnerStep | null {
     const closed = this.assembler.take();
     if (!closed) return null;
     const { scan } = closed;
     if (this.awaited !== null && scan.time_ms > this.awaited.time_ms) this.takeOver(this.awaited);
-    const isDue = withHours && this.isHoursDue(scan.time_ms);
-    const ask = { hours_at_W: isDue ? this.unit.hours_at_W : [], profile: true };
+    const isDue = hours !== 'none' && this.isHoursDue(scan.time_ms);
+    const ask = { hours_at_W: isDue && hours === 'now' ? this.unit.hours_at_W : [], profile: true };
     const step = this.core.advance(this.unit, this.state, scan, ask);
     const { estimate, profile } = step;
     if (this.awaited !== null) {
       const measured = measuredIn(this.unit, scan, estimate);
-      return { closed, step: { estimate, profile, events: [] }, measured };
+      return { closed, step: { estimate, profile, events: [] }, measured, hoursDue: false };
     }
     for (const event of step.events) {
       if (event.transition === 'raised') this.raised.set(event.id, event);
@@ -309,7 +312,19 @@ export class UnitRunner {
     Object.assign(this.view, { estimate, profile, measured, counts: step.counts ?? null });
     if (step.watch) this.view.watch = step.watch;
     if (estimate.dispatch) this.view.dispatch = { time: estimate.time, answers: estimate.dispatch };
-    return { closed, step, measured };
+    const hoursDue = isDue && hours === 'later' && this.unit.hours_at_W.length > 0;
+    return { closed, step, measured, hoursDue };
+  }
+
+  /** Hours from the state as it is. Throws what the core throws. */
+  hoursNow(): DispatchAnswer[] {
+    return this.core.hoursAt(this.unit, this.state, this.unit.hours_at_W);
+  }
+
+  /** Puts hours into the estimate of the newest step, before it is told. */
+  giveHours({ step: { estimate } }: RunnerStep, answers: DispatchAnswer[]): void {
+    estimate.dispatch = answers;
+    this.view.dispatch = { time: estimate.time, answers };
   }
 
   /** One that comes later than the first has its first hours from the worker, not amid the scans. */

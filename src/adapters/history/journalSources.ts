@@ -9,6 +9,7 @@ interface Named {
 export class JournalSources {
   private readonly numbers = new Map<string, Map<string, number>>();
   private readonly names = new Map<number, Named>();
+  private greatest = 0;
 
   constructor(private readonly database: Database) {
     const rows = database.prepare('SELECT no, unit, channel FROM sources').all();
@@ -27,7 +28,7 @@ export class JournalSources {
   numberOf(unit: string, channel: string): number {
     const known = this.numbers.get(unit)?.get(channel);
     if (known !== undefined) return known;
-    const no = Math.max(0, ...this.names.keys()) + 1;
+    const no = this.greatest + 1;
     this.database
       .prepare('INSERT INTO sources (no, unit, channel) VALUES (?, ?, ?)')
       .run(no, unit, channel);
@@ -41,6 +42,8 @@ export class JournalSources {
       this.names.delete(no);
       this.numbers.get(unit)?.delete(channel);
     }
+    this.greatest = 0;
+    for (const no of this.names.keys()) this.greatest = Math.max(this.greatest, no);
   }
 
   private remember(no: number, { unit, channel }: Named): void {
@@ -48,5 +51,6 @@ export class JournalSources {
     this.numbers.set(unit, own);
     own.set(channel, no);
     this.names.set(no, { unit, channel });
+    this.greatest = Math.max(this.greatest, no);
   }
 }

@@ -29,10 +29,13 @@ export function blankTube(model: TubeModel): TubeState {
   const middle = new Float64Array(layout.cells).fill((hot + cold) / 2);
   setTubeTemperatures(model, state, middle);
   const sigma = (hot - cold) / 2;
+  const byDistance = Float64Array.from(
+    middle,
+    (_, apart) => sigma * sigma * Math.exp(-4 * (apart / layout.cells)),
+  );
   for (let i = 0; i < layout.cells; i++) {
     for (let j = 0; j < layout.cells; j++) {
-      const apart = Math.abs(i - j) / layout.cells;
-      state.covariance[i * layout.size + j] = sigma * sigma * Math.exp(-4 * apart);
+      state.covariance[i * layout.size + j] = byDistance[Math.abs(i - j)] as number;
     }
   }
   priorOfFurther(model, state);

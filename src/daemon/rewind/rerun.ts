@@ -128,7 +128,7 @@ export class Rerun {
 
   private *steps(): Generator<'more'> {
     const { second } = this.parts;
-    for (let step = second.step(false); step; step = second.step(false)) {
+    for (let step = second.step('none'); step; step = second.step('none')) {
       this.enter(step);
       yield 'more';
     }

@@ -10,6 +10,7 @@ import type { SteadyClock } from '../../../src/daemon/clock.js';
 import type { Core } from '../../../src/daemon/core.js';
 import { Counters } from '../../../src/daemon/counters.js';
 import { Entering } from '../../../src/daemon/entering.js';
+import { HoursOnStroke, type HoursOnStrokeOptions } from '../../../src/daemon/hoursOnStroke.js';
 import { runnerMaker } from '../../../src/daemon/makeRunners.js';
 import { Notices } from '../../../src/daemon/notices.js';
 import { Pipeline } from '../../../src/daemon/pipeline.js';
@@ -29,7 +30,14 @@ export interface RigOptions {
   readonly units?: readonly UnitDefinition[];
   readonly late?: Partial<NonNullable<ReturnType<typeof smallSite>['late']>>;
   readonly checkpoint_every_s?: number;
+  /** Who answers hours where a unit's clock strikes; without, they are computed at once. */
+  readonly questions?: HoursOnStrokeOptions['questions'];
 }
+
+const NOBODY: HoursOnStrokeOptions['questions'] = {
+  hasWorker: false,
+  hours: () => Promise.reject(new Error('there is no worker')),
+};
 
 const LATE = { rewind_h: 48, rewind_point_every_s: 900, quiet_s: 30, wait_most_s: 600 };
 
@@ -93,6 +101,10 @@ export class Rig {
     const runners = [...this.runners.values()];
     this.pipeline = new Pipeline({
       ...{ ...common, runners, entering },
+      hours: new HoursOnStroke({
+        questions: options.questions ?? NOBODY,
+        notices: common.notices,
+      }),
       late: (runner, reading, isNew) => this.rewinder.note(runner, reading, isNew),
     });
     this.rewinder = new Rewinder({
