@@ -8,6 +8,7 @@ import { faultsAsText } from '../../src/config/faults.js';
 import { parseSite } from '../../src/config/load.js';
 import { makeCertificates } from '../support/certificates.js';
 import { temporaryFolder } from '../support/folders.js';
+import { requireProgram } from '../support/requirements.js';
 import { type Block, CONFIG_FOLDER, exampleData } from './sites.js';
 
 const hash = hashOf('1');
@@ -106,7 +107,7 @@ describe('an address beyond this machine', () => {
   });
 });
 
-describe('certificates', () => {
+describe.skipIf(!requireProgram('openssl'))('certificates', () => {
   const made = makeCertificates();
   const server = made.make('server', ['127.0.0.1']);
   const other = made.make('other', ['127.0.0.1']);

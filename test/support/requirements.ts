@@ -10,6 +10,7 @@ export const PROGRAMS = {
   influxd: { names: ['influxd'], package: 'influxdb' },
   systemdAnalyze: { names: ['systemd-analyze'], package: 'systemd' },
   strace: { names: ['strace'], package: 'strace' },
+  openssl: { names: ['openssl'], package: 'openssl' },
   chromium: { names: ['chromium', 'chromium-browser'], package: 'chromium' },
 } as const;
 export type ProgramName = keyof typeof PROGRAMS;

@@ -12,20 +12,23 @@ import { type Service, startInflux } from '../../support/services.js';
 import { event } from './unit.js';
 
 const influxd = requireProgram('influxd');
+const openssl = requireProgram('openssl');
 const PASSWORD = 'p4ss-of-the-forwarder';
 const STORE = {
   ...{ keep_readings_days: 90, keep_estimates_days: 730, thin_after_days: 30, thin_to_s: 600 },
   checkpoint_every_s: 600,
 };
 
-describe.skipIf(!influxd)('the forwarder to an InfluxDB with TLS and users', () => {
+describe.skipIf(!influxd || !openssl)('the forwarder to an InfluxDB with TLS and users', () => {
   const made = makeCertificates();
-  const ca = readFileSync(made.ca, 'utf8');
-  const tls: ClientTls = { ca, cert: null, key: null, server_name: null };
+  let ca: string;
+  let tls: ClientTls;
   let influx: Service;
   const ending: (() => Promise<unknown>)[] = [];
 
   beforeAll(async () => {
+    ca = readFileSync(made.ca, 'utf8');
+    tls = { ca, cert: null, key: null, server_name: null };
     // The name of the certificate is another than the address: server_name says which.
     const { cert, key } = made.make('database', ['database.example']);
     influx = await startInflux(influxd!, undefined, [

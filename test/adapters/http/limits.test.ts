@@ -10,6 +10,7 @@ import type { HttpTuning } from '../../../src/adapters/http/tuning.js';
 import type { HttpConfig } from '../../../src/config/site.js';
 import { makeCertificates } from '../../support/certificates.js';
 import { temporaryFolder } from '../../support/folders.js';
+import { requireProgram } from '../../support/requirements.js';
 import { testApp } from './httpApp.js';
 import { ScriptedPlant } from './scriptedPlant.js';
 
@@ -157,13 +158,13 @@ describe('paths', () => {
   });
 });
 
-describe('with TLS', () => {
+describe.skipIf(!requireProgram('openssl'))('with TLS', () => {
   const made = makeCertificates();
-  const ca = readFileSync(made.ca);
+  const authority = () => readFileSync(made.ca);
 
   /** Status and headers of an answer, and the name in the certificate it came by. */
   function ask(url: string) {
-    const agent = new Agent({ ca, keepAlive: false });
+    const agent = new Agent({ ca: authority(), keepAlive: false });
     return new Promise<{ status: number; hsts: string; name: string }>((resolve, reject) => {
       const asked = request(`${url}api/live`, { agent }, (answer) => {
         answer.resume();
@@ -195,7 +196,7 @@ describe('with TLS', () => {
     });
     const old = await new Promise<{ code?: string }>((resolve) => {
       const socket = connectSecurely({
-        ...{ host: '127.0.0.1', port, ca, minVersion: 'TLSv1', maxVersion: 'TLSv1.1' },
+        ...{ host: '127.0.0.1', port, ca: authority(), minVersion: 'TLSv1', maxVersion: 'TLSv1.1' },
         ciphers: 'DEFAULT@SECLEVEL=0',
       });
       socket.on('error', resolve);

@@ -8,15 +8,12 @@ import { requireProgram } from '../../support/requirements.js';
 import { type Service, startMosquitto } from '../../support/services.js';
 
 const mosquitto = requireProgram('mosquitto');
+const openssl = requireProgram('openssl');
 const text = (file: string) => readFileSync(file, 'utf8');
 
-describe.skipIf(!mosquitto)('the link to a mosquitto that asks for certificates', () => {
+describe.skipIf(!mosquitto || !openssl)('the link to a broker that wants certificates', () => {
   const made = makeCertificates();
-  const client = made.make('client', []);
-  const tls: ClientTls = {
-    ...{ ca: text(made.ca), cert: text(client.cert), key: text(client.key) },
-    server_name: null,
-  };
+  let tls: ClientTls;
   const links: MqttLink[] = [];
   const services: Service[] = [];
   let broker: Service;
@@ -31,6 +28,11 @@ describe.skipIf(!mosquitto)('the link to a mosquitto that asks for certificates'
     return service;
   };
   beforeAll(async () => {
+    const client = made.make('client', []);
+    tls = {
+      ...{ ca: text(made.ca), cert: text(client.cert), key: text(client.key) },
+      server_name: null,
+    };
     broker = await start('broker', ['127.0.0.1', 'localhost']);
   });
   afterEach(async () => {
