@@ -1,7 +1,6 @@
 import { existsSync } from 'node:fs';
 import { join } from 'node:path';
 import helmet from '@fastify/helmet';
-import rateLimit from '@fastify/rate-limit';
 import { fastifySSE } from '@fastify/sse';
 import fastifyStatic from '@fastify/static';
 import swagger from '@fastify/swagger';
@@ -20,6 +19,7 @@ import { FaultCounts, HttpFault } from './faults.js';
 import { JsonWriter } from './json.js';
 import { answerClientError, type Servers } from './listening.js';
 import { transformSchemas } from './openapi.js';
+import { addRates, countRefused } from './rates.js';
 import { alarmRoutes } from './routes/alarms.js';
 import { backupRoutes } from './routes/backup.js';
 import { historyRoutes } from './routes/history.js';
@@ -89,18 +89,7 @@ async function addPlugins(app: HttpApp, prefix: string, context: RouteContext): 
   await app.register(helmet, securityHeaders(entrance.isSecure));
   // Before the rates, which are counted by token, and before every route.
   const guard = addGuard(app, entrance);
-  await app.register(rateLimit, {
-    keyGenerator: ({ holder, ip }) => (holder === null ? ip : `token ${holder.name}`),
-    max: context.tuning.questions_per_min,
-    timeWindow: 60_000,
-    errorResponseBuilder: (_request, { max, ttl }) =>
-      new HttpFault(
-        429,
-        'too_many_requests',
-        `more than ${max} questions within a minute; ask again in ${Math.ceil(ttl / 1000)} s`,
-        { expected: `at most ${max} a minute` },
-      ),
-  });
+  await addRates(app, context.tuning.questions_per_min);
   // Awaited: the plugin takes in only routes that are declared after it.
   await app.register(fastifySSE, { serializer: context.json.write });
   await app.register(swagger, {
@@ -197,7 +186,8 @@ export async function createHttpApp(
   app.setSerializerCompiler(() => json.write);
   app.setReplySerializer((payload) => json.write(payload));
   app.setErrorHandler(onError);
-  app.setNotFoundHandler((request) => {
+  app.setNotFoundHandler(async (request, reply) => {
+    await countRefused(request, reply);
     throw new HttpFault(
       404,
       'unknown_route',

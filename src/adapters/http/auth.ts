@@ -5,6 +5,7 @@ import { covers, type Rank } from '../../access/role.js';
 import { TOKEN_PATTERN } from '../../access/token.js';
 import { recordedWho } from '../../access/who.js';
 import { HttpFault } from './faults.js';
+import { askerOf, countRefused } from './rates.js';
 import type { HttpApp } from './routes.js';
 
 /** What a route asks of whoever calls it; `public`: nothing. */
@@ -71,7 +72,12 @@ export function addGuard(app: HttpApp, entrance: Entrance): Guard {
     const shown = bearer ?? cookieOf(request.headers.cookie);
     request.holder = shown === null ? null : access.holderOf(shown);
     if (role === 'public' || request.is404) return;
-    if (request.holder === null) throw refuseToken(entrance, request, reply, shown !== null);
+    if (request.holder === null) {
+      const refusal = refuseToken(entrance, request, reply, shown !== null);
+      if (refusal.statusCode === 401) await countRefused(request, reply);
+      throw refusal;
+    }
+    if (!covers(request.holder.role, role)) await countRefused(request, reply);
     requireRole(request.holder, role);
     if (bearer === null && !isReading(request.method)) requireOwnPage(request);
   });
@@ -117,7 +123,7 @@ export function refuseToken(
     const words = 'log in first: this needs a token, and none came along';
     return new HttpFault(401, 'not_logged_in', words, { field: 'authorization', expected });
   }
-  const wait_s = failures.add(request.ip);
+  const wait_s = failures.add(askerOf(request.ip));
   if (wait_s > 0) {
     reply.header('retry-after', String(wait_s));
     const words = `too many wrong tokens from this address; try again in ${wait_s} s`;
