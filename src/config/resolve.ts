@@ -119,8 +119,9 @@ function sourcesOf(unit: UnitBlock, inPrefix: string): ChannelSource[] {
 
 function resolveWebhook(
   { id, url, send, least_priority, timeout_s, oldest_h }: NotifyBlock['webhooks'][number],
-  { webhooks }: Secrets,
+  { webhooks, webhooks_tls }: Secrets,
 ): WebhookConfig {
   const secret = webhooks[id] ?? null;
-  return { id, url, secret, send, least_priority, timeout_s, oldest_h };
+  const tls = webhooks_tls[id] ?? null;
+  return { id, url, secret, tls, send, least_priority, timeout_s, oldest_h };
 }

@@ -13,6 +13,7 @@ export interface Secrets {
   readonly influx: string | null;
   /** By id of the receiver. */
   readonly webhooks: Readonly<Record<string, string | null>>;
+  readonly webhooks_tls: Readonly<Record<string, ClientTls | null>>;
   /** Tokens of http.tokens_file. */
   readonly tokens: readonly AccessToken[];
   readonly mqtt_tls: ClientTls | null;
@@ -92,6 +93,12 @@ export function readSecrets(
     mqtt: login('mqtt'),
     influx: login('influx'),
     webhooks: Object.fromEntries(webhooks) as Record<string, string | null>,
+    webhooks_tls: Object.fromEntries(
+      site.notify.webhooks.map(({ id, tls: block }, i) => [
+        id,
+        tls.client(['notify', 'webhooks', i, 'tls'], block),
+      ]),
+    ),
   };
   return { secrets, faults };
 }

@@ -112,6 +112,8 @@ export interface WebhookConfig {
   readonly url: string;
   /** Key of the signature; null: not signed. */
   readonly secret: string | null;
+  /** Absent or null: nothing beyond what the url says. */
+  readonly tls?: ClientTls | null;
   readonly send: readonly ('alarm' | 'alert')[];
   readonly least_priority: 'high' | 'medium' | 'low';
   readonly timeout_s: number;

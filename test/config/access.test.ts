@@ -1,4 +1,4 @@
-import { chmodSync, writeFileSync } from 'node:fs';
+import { chmodSync, readFileSync, writeFileSync } from 'node:fs';
 import { join } from 'node:path';
 import { describe, expect, it } from 'vitest';
 import { stringify } from 'yaml';
@@ -123,8 +123,10 @@ describe.skipIf(!requireProgram('openssl'))('certificates', () => {
       };
       d.influx = { url: 'https://database:8086', tls: { ca_file: made.ca } };
       d.http = { tls: { cert_file: server.cert, key_file: server.key } };
+      d.notify = { webhooks: [{ id: 'w', url: 'https://w/', tls: { ca_file: made.ca } }] };
     });
     expect(faults).toEqual([]);
+    expect(site?.notify?.webhooks[0]?.tls).toMatchObject({ ca: readFileSync(made.ca, 'utf8') });
     expect(site?.mqtt.tls).toMatchObject({ server_name: 'b' });
     for (const pem of [site?.mqtt.tls?.ca, site?.influx?.tls?.ca, site?.http.tls?.cert]) {
       expect(pem).toContain('BEGIN CERTIFICATE');
@@ -156,12 +158,38 @@ describe.skipIf(!requireProgram('openssl'))('certificates', () => {
     expect(JSON.stringify(faults)).not.toContain('BEGIN PRIVATE KEY-----\n');
   });
 
+  it.each([
+    ['nowhere', /^nowhere, no file that can be read \(ENOENT\)$/],
+    ['none', /^none, a file without a certificate$/],
+    ['server.key', /^server\.key, a file without a certificate$/],
+  ])('of the authority of a webhook: %s does not serve', (ca_file, found) => {
+    writeFileSync(join(folder, 'server.key'), readFileSync(server.key));
+    const { faults } = parsed((d) => {
+      const tls = { ca_file };
+      d.notify = {
+        webhooks: [
+          { id: 'plain', url: 'http://w/' },
+          { id: 'w', url: 'https://w/', tls },
+        ],
+      };
+    }, folder);
+    expect(faults).toHaveLength(1);
+    expect(faults[0]).toMatchObject({ path: 'notify.webhooks[1].tls.ca_file' });
+    expect(faults[0]?.line).toBeGreaterThan(0);
+    expect(faults[0]?.found).toMatch(found);
+    expect(faults[0]?.expected).toMatch(/^a certificate in PEM, which begins with -----BEGIN/);
+    expect(JSON.stringify(faults)).not.toContain('BEGIN PRIVATE KEY');
+  });
+
   it('need an address with TLS, and a key beside each certificate', () => {
     const { places } = parsed((d) => {
+      d.notify = { webhooks: [{ id: 'w', url: 'http://w/', tls: { ca_file: made.ca } }] };
       d.mqtt = { url: 'mqtt://broker', tls: { cert_file: server.cert } };
       d.influx = { url: 'http://database:8086', tls: { ca_file: made.ca } };
     });
-    expect(places.sort()).toEqual(['influx.url', 'mqtt.tls.key_file', 'mqtt.url']);
+    expect(places.sort()).toEqual([
+      ...['influx.url', 'mqtt.tls.key_file', 'mqtt.url', 'notify.webhooks[0].url'],
+    ]);
     const own = parsed((d) => {
       d.mqtt.tls = { ca_file: made.ca };
     });

@@ -1,6 +1,7 @@
 import type { WebhookConfig } from '../../config/site.js';
 import type { ToldEvent } from '../../core/alarm/telling.js';
 import { reasonOf } from '../../errors.js';
+import { post } from './post.js';
 import { type EventQueue, QueueLoop } from './queueLoop.js';
 import { signedHeaders } from './signature.js';
 
@@ -125,18 +126,10 @@ export class WebhookForwarder {
       1000 * config.timeout_s,
     );
     try {
-      const answer = await fetch(config.url, {
-        ...{ method: 'POST', body, headers, signal: cut.signal },
-        // A redirect would carry what we say to where nobody configured it.
-        redirect: 'manual',
-      });
-      await answer.body?.cancel();
-      return answer.status;
+      const { url, tls = null } = config;
+      return await post({ url, headers, body, tls, signal: cut.signal });
     } catch (thrown) {
-      // The client's own words are `fetch failed`; what happened is its cause.
-      throw inWords(
-        thrown instanceof Error && thrown.cause instanceof Error ? thrown.cause : thrown,
-      );
+      throw inWords(thrown);
     } finally {
       clearTimeout(late);
       this.underWay = null;

@@ -8,7 +8,7 @@ const SOON_MS = 30 * 86_400_000;
 
 /** What a person should look at who opens a site to a network; not faults. */
 export function siteNotes(site: SiteConfig, now_ms = Date.now()): string[] {
-  const { http, mqtt, influx } = site;
+  const { http, mqtt, influx, notify } = site;
   const notes: string[] = [];
   const hasTokens = (http.tokens ?? []).length > 0;
   if (!staysHere(http.host) && http.login_by_proxy) {
@@ -39,6 +39,9 @@ export function siteNotes(site: SiteConfig, now_ms = Date.now()): string[] {
     ...certificateNotes('mqtt.tls.cert_file', mqtt.tls?.cert, now_ms),
     ...certificateNotes('mqtt.tls.ca_file', mqtt.tls?.ca, now_ms),
     ...certificateNotes('influx.tls.ca_file', influx?.tls?.ca, now_ms),
+    ...(notify?.webhooks ?? []).flatMap(({ tls }, i) =>
+      certificateNotes(`notify.webhooks[${i}].tls.ca_file`, tls?.ca, now_ms),
+    ),
     ...(site.secret_files ?? []).flatMap(openFileNotes),
   ];
 }

@@ -73,7 +73,7 @@ function openFaults(site: SiteBlock): CrossFault[] {
 }
 
 /** Certificates without encryption, a certificate without its key. */
-function tlsFaults({ mqtt, influx }: SiteBlock): CrossFault[] {
+function tlsFaults({ mqtt, influx, notify }: SiteBlock): CrossFault[] {
   const faults: CrossFault[] = [];
   const { tls } = mqtt;
   if (tls !== undefined && !/^(mqtts|tls|wss):/.test(mqtt.url ?? '')) {
@@ -93,6 +93,12 @@ function tlsFaults({ mqtt, influx }: SiteBlock): CrossFault[] {
   if (influx?.tls !== undefined && !influx.url.startsWith('https:')) {
     const expected = 'an address that begins with https://, as influx.tls stands beside it';
     faults.push(cross(['influx', 'url'], influx.url, expected, { others: [['influx', 'tls']] }));
+  }
+  for (const [i, { url, tls: own }] of notify.webhooks.entries()) {
+    if (own === undefined || url.startsWith('https:')) continue;
+    const at = ['notify', 'webhooks', i];
+    const expected = 'an address that begins with https://, as tls stands beside it';
+    faults.push(cross([...at, 'url'], url, expected, { others: [[...at, 'tls']] }));
   }
   return faults;
 }

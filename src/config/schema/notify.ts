@@ -1,5 +1,6 @@
 import { z } from 'zod';
 import { id, key, positive, section, worded } from './key.js';
+import { serverTls } from './tls.js';
 
 const webhook = z.strictObject({
   id: key(id(), '-', 'Name of the receiver, in logs, health and counters.', 'on_call'),
@@ -32,6 +33,11 @@ const webhook = z.strictObject({
     'ROCKHOUR_WEBHOOK_SECRET',
     'not signed',
   ).optional(),
+  tls: section(
+    serverTls.optional(),
+    'Certificates for a url that begins with https; TLS 1.2 at least.',
+    'the authorities that Node brings along',
+  ),
   send: key(
     z.array(z.enum(['alarm', 'alert'])).min(1),
     '-',

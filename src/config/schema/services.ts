@@ -4,6 +4,7 @@ import { HASH_PATTERN, HASH_WORDS, NAME_PATTERN, NAME_WORDS } from '../../access
 import { MOST_TOKENS } from '../../access/tokensFile.js';
 import { sparkplugNodeSchema, topic } from './channels.js';
 import { key, positive, section, worded } from './key.js';
+import { ca_file, file, ownCertificate, server_name, serverTls } from './tls.js';
 
 const port = () => z.int().min(0).max(65535);
 const login = {
@@ -35,33 +36,6 @@ const login = {
     'none',
   ).optional(),
 };
-
-const file = (what: string, example: string, otherwise: string) =>
-  key(
-    z.string().min(1).max(1000),
-    '-',
-    `${what}; relative to this configuration.`,
-    example,
-    otherwise,
-  );
-const ca_file = file(
-  'PEM file of the authorities whose certificates are believed',
-  '/etc/rockhour/ca.pem',
-  'those that Node brings along',
-).optional();
-const server_name = key(
-  worded(
-    z
-      .string()
-      .regex(/^[A-Za-z0-9.-]+$/)
-      .max(253),
-    'a host name',
-  ),
-  '-',
-  "Name that the server's certificate has to be for.",
-  'broker.plant',
-  'the host of the url',
-).optional();
 
 /** Broker that the readings come from. */
 export const mqttSchema = z.strictObject({
@@ -156,7 +130,7 @@ export const influxSchema = z.strictObject({
   ).default('rockhour'),
   ...login,
   tls: section(
-    z.strictObject({ ca_file, server_name }).optional(),
+    serverTls.optional(),
     'Certificates for a url that begins with https; TLS 1.2 at least.',
     'the authorities that Node brings along',
   ),
@@ -256,20 +230,7 @@ export const httpSchema = z.strictObject({
     false,
   ).default(false),
   tls: section(
-    z
-      .strictObject({
-        cert_file: file(
-          "PEM file of the server's certificate and those that vouch for it",
-          '/etc/rockhour/server.pem',
-          'required',
-        ),
-        key_file: file(
-          'PEM file of the private key to cert_file, without a passphrase',
-          '/etc/rockhour/server.key',
-          'required',
-        ),
-      })
-      .optional(),
+    ownCertificate.optional(),
     'Certificate of page and API, read again when it changes; TLS 1.2 at least.',
     'plain HTTP',
   ),

@@ -1,4 +1,6 @@
-import { createServer, type IncomingMessage, type Server } from 'node:http';
+import { readFileSync } from 'node:fs';
+import { createServer, type IncomingMessage, type RequestListener, type Server } from 'node:http';
+import { createServer as createSecureServer } from 'node:https';
 import type { AddressInfo } from 'node:net';
 
 export interface Received {
@@ -11,11 +13,18 @@ export class Receiver {
   readonly got: Received[] = [];
   private server: Server | null = null;
 
-  /** @param answer status, or null: never answers */
-  constructor(private readonly answer: (n: number, body: string) => number | null) {}
+  /**
+   * @param answer status, or null: never answers
+   * @param tls files of its certificate; without them it speaks plain HTTP
+   */
+  constructor(
+    private readonly answer: (n: number, body: string) => number | null,
+    private readonly tls?: { readonly cert: string; readonly key: string },
+  ) {}
 
   async start(port = 0): Promise<string> {
-    const server = createServer((request, response) => {
+    const { tls } = this;
+    const listener: RequestListener = (request, response) => {
       let body = '';
       request.on('data', (chunk) => {
         body += chunk;
@@ -27,10 +36,17 @@ export class Receiver {
         if (status === 302) response.setHeader('location', '/elsewhere');
         response.writeHead(status).end('{}');
       });
-    });
+    };
+    const server =
+      tls === undefined
+        ? createServer(listener)
+        : createSecureServer(
+            { cert: readFileSync(tls.cert), key: readFileSync(tls.key) },
+            listener,
+          );
     this.server = server;
     await new Promise<void>((resolve) => server.listen(port, '127.0.0.1', resolve));
-    return `http://127.0.0.1:${(server.address() as AddressInfo).port}/hook`;
+    return `http${tls === undefined ? '' : 's'}://127.0.0.1:${(server.address() as AddressInfo).port}/hook`;
   }
 
   async stop(): Promise<void> {
