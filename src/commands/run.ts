@@ -5,6 +5,7 @@ import type { SiteConfig } from '../config/site.js';
 import type { DaemonPlaces } from '../daemon.js';
 import { RockhourError } from '../errors.js';
 import { createLog, LOG_LEVELS, type LogLevel } from '../log.js';
+import { siteNotes } from './check/siteNotes.js';
 import { Reloading } from './reload.js';
 import { askedToStop, stopInTime } from './stopping.js';
 import { packageVersion } from './version.js';
@@ -46,6 +47,7 @@ async function run(options: RunOptions): Promise<void> {
       `unit ${id} is left out, its readings are not taken in: ${faultsAsText(source.path, faults)}`,
     );
   }
+  for (const note of siteNotes(site)) log.warn(note);
   // Servers and clients take half a second to load, which a refusal above need not wait for.
   const { createDaemon } = await import('../daemon.js');
   let lose: (thrown: unknown) => void = () => undefined;

@@ -31,6 +31,8 @@ export function resolveSite(site: SiteBlock, baseFolder: string, secrets: Secret
       url: mqtt.url ?? null,
       embedded_host: mqtt.embedded_host,
       embedded_port: mqtt.embedded_port,
+      embedded_tls: secrets.embedded_tls,
+      embedded_packet_max_bytes: mqtt.embedded_packet_max_kB * 1000,
       client_id: mqtt.client_id,
       username: mqtt.username ?? null,
       password: secrets.mqtt,

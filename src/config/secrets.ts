@@ -18,6 +18,7 @@ export interface Secrets {
   readonly tokens: readonly AccessToken[];
   readonly mqtt_tls: ClientTls | null;
   readonly influx_tls: ClientTls | null;
+  readonly embedded_tls: ServerTls | null;
   readonly http_tls: ServerTls | null;
   /** Files that hold secrets. */
   readonly files: readonly SecretFile[];
@@ -89,6 +90,7 @@ export function readSecrets(
     mqtt_tls: tls.client(['mqtt', 'tls'], site.mqtt.tls),
     influx_tls: tls.client(['influx', 'tls'], site.influx?.tls),
     http_tls: tls.server(['http', 'tls'], site.http.tls),
+    embedded_tls: tls.server(['mqtt', 'embedded_tls'], site.mqtt.embedded_tls),
     files,
     mqtt: login('mqtt'),
     influx: login('influx'),

@@ -54,6 +54,10 @@ export interface MqttConfig {
   readonly url: string | null;
   readonly embedded_host: string;
   readonly embedded_port: number;
+  /** Certificate of its own broker; absent or null: plain TCP. */
+  readonly embedded_tls?: ServerTls | null;
+  /** Greatest packet that its own broker takes, with its header; absent: what MQTT allows. */
+  readonly embedded_packet_max_bytes?: number;
   readonly client_id: string;
   readonly username: string | null;
   readonly password: string | null;

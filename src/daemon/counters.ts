@@ -64,10 +64,13 @@ const OWN_COUNTS = [
   'alarm_commands_malformed',
   /** Answers to such commands that could not be sent. */
   'alarm_answers_lost',
-  /** At its own broker: log-ins, messages and subscriptions that were refused. */
+  /** At its own broker: log-ins, messages and subscriptions that were refused; clients cut off. */
   'broker_logins_refused',
   'broker_publishes_refused',
   'broker_subscriptions_refused',
+  'broker_packets_refused',
+  'broker_connections_refused',
+  'broker_handshakes_refused',
   /** Journal entries of a unit or channel that is no longer configured. */
   'unconfigured',
   'questions',

@@ -2,11 +2,12 @@ import type { Access } from '../access/access.js';
 import type { AlarmAnswer } from '../adapters/http/service.js';
 import { AlarmCommands } from '../adapters/mqtt/alarmCommands.js';
 import { Announcer } from '../adapters/mqtt/announcer.js';
-import { EmbeddedBroker } from '../adapters/mqtt/broker.js';
+import { type BrokerOptions, EmbeddedBroker } from '../adapters/mqtt/broker.js';
 import type { DoorOptions } from '../adapters/mqtt/door.js';
 import type { Intake } from '../adapters/mqtt/intake.js';
 import { type LinkOptions, MqttLink } from '../adapters/mqtt/link.js';
 import type { SparkplugHost } from '../adapters/mqtt/sparkplug/host.js';
+import { nodeClientId } from '../adapters/mqtt/sparkplug/ownLink.js';
 import { parseTopic, topicOf } from '../adapters/mqtt/sparkplug/topics.js';
 import { TopicSet } from '../adapters/mqtt/topicRules.js';
 import type { MqttConfig } from '../config/site.js';
@@ -16,6 +17,11 @@ import type { DaemonClock } from './clock.js';
 import type { Counters } from './counters.js';
 import type { Notices } from './notices.js';
 import type { OwnNodePart, OwnNodePartOptions } from './ownNodePart.js';
+
+/** What its own broker refuses. */
+type Refusal =
+  | Parameters<DoorOptions['refused']>[0]
+  | Parameters<NonNullable<BrokerOptions['refused']>>[0];
 
 /** A start waits this long for the broker's first word; one that is away does not hold it up [ms]. */
 const FIRST_WORD_MS = 2000;
@@ -81,7 +87,9 @@ export class MqttPart {
       lost: () => options.counters.add('alarm_answers_lost'),
     });
     this.broker =
-      url === null ? new EmbeddedBroker(embedded_host, embedded_port, this.door()) : null;
+      url === null
+        ? new EmbeddedBroker(embedded_host, embedded_port, this.door(), this.brokerOptions())
+        : null;
     this.ownNode = options.ownNode?.(this.login) ?? null;
     this.link = new MqttLink({
       client_id: config.client_id,
@@ -121,12 +129,16 @@ export class MqttPart {
   }
 
   /** How the broker is reached. */
-  private get login(): Pick<LinkOptions, 'url' | 'username' | 'password' | 'tls' | 'protocol'> {
+  private get login(): Pick<
+    LinkOptions,
+    'url' | 'inside' | 'username' | 'password' | 'tls' | 'protocol'
+  > {
     const { broker } = this;
     const { username, password, tls = null, protocol } = this.options.config;
     return {
       // Asked for at the start: the port of an embedded broker is known only then.
       url: () => this.url,
+      inside: broker?.inside ?? null,
       username: broker?.login?.username ?? username,
       password: broker?.login?.password ?? password,
       tls,
@@ -208,15 +220,31 @@ export class MqttPart {
   }
 
   private door(): DoorOptions {
-    const { access, config, intake, counters, notices } = this.options;
+    const { access, config, intake } = this.options;
     return {
-      ...{ access, client_id: config.client_id, out_prefix: config.out_prefix },
+      ...{ access, out_prefix: config.out_prefix },
+      own_ids: [config.client_id, nodeClientId(config.client_id)],
       ...{ readings: new TopicSet(intake.topics), commands: this.commands.topics },
-      refused: (what, text) => {
-        counters.add(`broker_${what}_refused`);
-        notices.warn(`broker_${what}_refused`, `its own broker refused: ${text}`);
-      },
+      refused: (what, text) => this.refusedSomebody(what, text),
     };
+  }
+
+  private brokerOptions(): BrokerOptions {
+    const { config, log } = this.options;
+    const { embedded_tls: tls = null, embedded_packet_max_bytes: most } = config;
+    return {
+      tls,
+      ...(most === undefined ? {} : { packet_most_bytes: most }),
+      refused: (what, text) => this.refusedSomebody(what, text),
+      info: (text) => log.info(text),
+      error: (text) => log.error(text),
+    };
+  }
+
+  private refusedSomebody(what: Refusal, text: string): void {
+    const { counters, notices } = this.options;
+    counters.add(`broker_${what}_refused`);
+    notices.warn(`broker_${what}_refused`, `its own broker refused: ${text}`);
   }
 
   private get url(): string {

@@ -1,6 +1,6 @@
 import type { HealthPart } from '../adapters/http/service.js';
 import type { LinkOptions } from '../adapters/mqtt/link.js';
-import { OwnLink } from '../adapters/mqtt/sparkplug/ownLink.js';
+import { nodeClientId, OwnLink } from '../adapters/mqtt/sparkplug/ownLink.js';
 import { OwnNode } from '../adapters/mqtt/sparkplug/ownNode.js';
 import type { NodeName } from '../adapters/mqtt/sparkplug/topics.js';
 import type { UnitDefinition } from '../core/definitions.js';
@@ -17,7 +17,10 @@ export interface OwnNodePartOptions {
   readonly site: string;
   readonly version: string;
   /** How the broker is reached, as rockhour's other link does. */
-  readonly login: Pick<LinkOptions, 'url' | 'username' | 'password' | 'tls' | 'protocol'>;
+  readonly login: Pick<
+    LinkOptions,
+    'url' | 'inside' | 'username' | 'password' | 'tls' | 'protocol'
+  >;
   readonly client_id: string;
   readonly history: {
     kept(name: string): number | null;
@@ -44,7 +47,7 @@ export class OwnNodePart {
     });
     this.link = new OwnLink({
       ...login,
-      ...{ node: this.node, client_id: `${client_id}-sparkplug` },
+      ...{ node: this.node, client_id: nodeClientId(client_id) },
       lastBdSeq: () => history.kept(BDSEQ),
       keepBdSeq: (bdSeq) => {
         try {

@@ -181,6 +181,40 @@ describe.skipIf(!requireProgram('openssl'))('certificates', () => {
     expect(JSON.stringify(faults)).not.toContain('BEGIN PRIVATE KEY');
   });
 
+  it('of its own broker are read, and are for no broker of the site', () => {
+    const embedded_tls = { cert_file: server.cert, key_file: server.key };
+    const { site, faults } = parsed((d) => {
+      d.mqtt = { embedded_tls };
+    });
+    expect(faults).toEqual([]);
+    expect(site?.mqtt.embedded_tls?.key).toContain('PRIVATE KEY');
+    expect(site?.mqtt.embedded_packet_max_bytes).toBe(1_200_000);
+    expect(site?.secret_files?.map(({ path }) => path)).toEqual(['mqtt.embedded_tls.key_file']);
+    const { places } = parsed((d) => {
+      d.mqtt = { url: 'mqtts://broker', embedded_tls };
+    });
+    expect(places).toEqual(['mqtt.url']);
+    const unlike = parsed((d) => {
+      d.mqtt = { embedded_tls: { cert_file: server.cert, key_file: other.key } };
+    });
+    expect(unlike.places).toEqual(['mqtt.embedded_tls.key_file']);
+    // TLS alone asks nobody who they are.
+    const open = parsed((d) => {
+      d.mqtt = { embedded_host: '0.0.0.0', embedded_tls };
+    });
+    expect(open.places).toEqual(['mqtt.embedded_host']);
+    const clear = (mqtt: object) =>
+      siteNotes(
+        parsed((d) => {
+          d.http = { tokens: [token] };
+          d.mqtt = { embedded_host: '0.0.0.0', ...mqtt };
+        }).site!,
+      ).filter((note) => note.startsWith('mqtt.embedded_host'));
+    expect(clear({})).toHaveLength(1);
+    expect(clear({})[0]).toMatch(/in the clear/);
+    expect(clear({ embedded_tls })).toEqual([]);
+  });
+
   it('need an address with TLS, and a key beside each certificate', () => {
     const { places } = parsed((d) => {
       d.notify = { webhooks: [{ id: 'w', url: 'http://w/', tls: { ca_file: made.ca } }] };

@@ -1,32 +1,37 @@
-import { statSync } from 'node:fs';
-import { readFile } from 'node:fs/promises';
 import { createServer, type RequestListener, type Server } from 'node:http';
 import { createServer as createSecureServer, type Server as SecureServer } from 'node:https';
 import type { Socket } from 'node:net';
+import { CertificateWatch, LEAST_TLS } from '../../access/certificateWatch.js';
 import type { ServerTls } from '../../config/site.js';
-import { reasonOf } from '../../errors.js';
 import type { HttpTuning } from './tuning.js';
 
-/** Nothing older is spoken. */
-export const LEAST_TLS = 'TLSv1.2';
 /** Request line and headers together [bytes]; Node answers more with 431. */
 const MOST_HEADER_BYTES = 16 * 1024;
 
 /** Servers of one app: Node's, with their limits; for `localhost` there are two of them. */
 export class Servers {
   private readonly secure: SecureServer[] = [];
-  private timer: NodeJS.Timeout | null = null;
-  private stamp: string;
+  private readonly watch: CertificateWatch | null;
 
   constructor(
     private readonly tuning: HttpTuning,
     private readonly tls: ServerTls | null,
-    private readonly say: {
+    say: {
       info(text: string): void;
       error(text: string): void;
     },
   ) {
-    this.stamp = this.stampOf();
+    this.watch =
+      tls &&
+      new CertificateWatch({
+        ...{ path: 'http.tls', cert_file: tls.cert_file, key_file: tls.key_file },
+        every_ms: tuning.certificate_look_ms,
+        take: (cert, key) => {
+          const context = { cert, key, minVersion: LEAST_TLS } as const;
+          for (const server of this.secure) server.setSecureContext(context);
+        },
+        ...say,
+      });
   }
 
   /** Slow senders of headers and bodies are ended, idle connections too; the number is bounded. */
@@ -54,45 +59,13 @@ export class Servers {
     return server;
   };
 
-  /** Looks at the files of the certificate from time to time and takes over what is new in them. */
   start(): void {
-    if (this.tls === null) return;
-    this.timer ??= setInterval(() => void this.renew(), this.tuning.certificate_look_ms);
-    this.timer.unref();
+    this.watch?.start();
   }
 
   stop(): void {
-    if (this.timer !== null) clearInterval(this.timer);
-    this.timer = null;
+    this.watch?.stop();
   }
-
-  private async renew(): Promise<void> {
-    const stamp = this.stampOf();
-    if (this.tls === null || stamp === this.stamp) return;
-    this.stamp = stamp;
-    const { cert_file, key_file } = this.tls;
-    try {
-      const [cert, key] = await Promise.all([readFile(cert_file), readFile(key_file)]);
-      const context = { cert, key, minVersion: LEAST_TLS } as const;
-      for (const server of this.secure) server.setSecureContext(context);
-      this.say.info('http.tls: takes over the new certificate');
-    } catch (thrown) {
-      // As long as one of the two files is the old one, they do not fit; the next look tells more.
-      this.say.error(
-        `http.tls: goes on with the certificate before; ${cert_file} and ${key_file} cannot be used: ${reasonOf(thrown)}`,
-      );
-    }
-  }
-
-  private stampOf(): string {
-    if (this.tls === null) return '';
-    return [this.tls.cert_file, this.tls.key_file].map(stampOf).join();
-  }
-}
-
-function stampOf(file: string): string {
-  const found = statSync(file, { throwIfNoEntry: false });
-  return found === undefined ? 'gone' : `${found.mtimeMs} ${found.size} ${found.ino}`;
 }
 
 const STATUS: Readonly<Record<string, readonly [status: number, reason: string, words: string]>> = {

@@ -7,8 +7,8 @@ import { mayPublish, maySubscribe, type Topics } from './topicRules.js';
 
 export interface DoorOptions extends Topics {
   readonly access: Access;
-  /** Client id of rockhour's own link: nobody else comes in under it. */
-  readonly client_id: string;
+  /** Client ids of rockhour's own links: nobody else comes in under one. */
+  readonly own_ids: readonly string[];
   /** Somebody was turned away, or something that a client may not do was left undone. */
   refused(what: 'logins' | 'publishes' | 'subscriptions', text: string): void;
 }
@@ -28,7 +28,7 @@ type Mine = 'rockhour';
  * connection is ended sends it again for ever.
  */
 export class Door {
-  /** The log-in of rockhour's own link, drawn at each start. */
+  /** The log-in of rockhour's own links, drawn at each start. */
   readonly login = { username: 'rockhour', password: randomBytes(32).toString('base64url') };
   private readonly inside = new Map<Client, Holder | Mine>();
   private stopListening: (() => void) | null = null;
@@ -56,16 +56,13 @@ export class Door {
     authenticate: (client, username, password, done) => {
       const shown = password?.toString() ?? '';
       const who = this.whoIs(username ?? '', shown);
-      if (who !== null && (who === 'rockhour' || client.id !== this.options.client_id)) {
-        this.inside.set(client, who);
+      const isTaken = who !== 'rockhour' && this.options.own_ids.includes(client.id);
+      if (!isTaken && (who !== null || this.options.access.isOpen)) {
+        if (who !== null) this.inside.set(client, who);
         done(null, true);
         return;
       }
-      if (this.options.access.isOpen) {
-        done(null, true);
-        return;
-      }
-      const why = who === null ? 'name and token do not belong together' : 'the client id is taken';
+      const why = isTaken ? 'the client id is taken' : 'name and token do not belong together';
       this.options.refused(
         'logins',
         `${short(client.id)} as ${short(username ?? 'nobody')}: ${why}`,
@@ -123,6 +120,8 @@ export class Door {
 
   private lets(client: Client, packet: PublishPacket): boolean {
     const who = this.inside.get(client);
+    // The broker speaks to itself there: of clients to be ended, for one.
+    if (packet.topic.startsWith('$')) return false;
     if (this.isFree(who)) return true;
     if (!isHolder(who) || !this.holds(who)) return false;
     if (!mayPublish(who.role, packet.topic, this.options)) return false;
@@ -137,9 +136,10 @@ export class Door {
     }
   }
 
-  private nameOf(client: Client): string {
+  /** Whose connection it is: by its token, else by the id that it gives itself; '' before that. */
+  nameOf(client: Client): string {
     const who = this.inside.get(client);
-    return isHolder(who) ? who.name : short(client.id);
+    return isHolder(who) ? who.name : short(client.id ?? '');
   }
 }
 

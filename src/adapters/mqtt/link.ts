@@ -1,5 +1,6 @@
+import type { Duplex } from 'node:stream';
 import type { SecureContextOptions } from 'node:tls';
-import { connect, type IClientOptions, type IPublishPacket, type MqttClient } from 'mqtt';
+import { connect, type IClientOptions, type IPublishPacket, MqttClient } from 'mqtt';
 import type { ClientTls } from '../../config/site.js';
 import { reasonOf } from '../../errors.js';
 
@@ -21,6 +22,8 @@ export interface Delivery {
 export interface LinkOptions {
   /** Asked at each start. */
   url(): string;
+  /** Opens a connection within the process, asked at each try; absent: the url is connected to. */
+  readonly inside?: (() => Duplex) | null;
   readonly client_id: string;
   readonly username: string | null;
   readonly password: string | null;
@@ -88,7 +91,7 @@ export class MqttLink {
 
   start(): void {
     if (this.client) return;
-    const client = connect(this.options.url(), clientOptions(this.options));
+    const client = openClient(this.options, clientOptions(this.options));
     this.client = client;
     client.handleMessage = (packet, done) => this.take(packet as IPublishPacket, done);
     client.on('connect', () => this.subscribe(client));
@@ -243,7 +246,6 @@ function clientOptions(options: LinkOptions): IClientOptions {
     clientId: options.client_id,
     clean: false,
     protocolVersion: options.protocol,
-    ...tlsOptions(options),
     ...(options.username === null ? {} : { username: options.username }),
     ...(options.password === null ? {} : { password: options.password }),
     ...(options.protocol === 5
@@ -264,8 +266,17 @@ function clientOptions(options: LinkOptions): IClientOptions {
   };
 }
 
+/** A client of MQTT.js, by the network or within the process. */
+export function openClient(
+  { url, tls = null, inside = null }: Pick<LinkOptions, 'url' | 'tls' | 'inside'>,
+  options: IClientOptions,
+): MqttClient {
+  if (inside !== null) return new MqttClient(() => inside(), options);
+  return connect(url(), { ...options, ...tlsOptions({ url, tls }) });
+}
+
 /** A certificate is always checked; nothing older than TLS 1.2 is spoken. */
-export function tlsOptions({
+function tlsOptions({
   url,
   tls = null,
 }: Pick<LinkOptions, 'url' | 'tls'>): IClientOptions & SecureContextOptions {

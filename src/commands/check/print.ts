@@ -13,15 +13,18 @@ export function factsAsText(file: string, site: SiteConfig, units: readonly Unit
   const head = [
     `${file} is sound.`,
     `${site.name}: ${count(units.length, 'unit')}, ${count(channels, 'channel')} from ${count(site.sources.length, 'topic')}`,
-    `MQTT     ${site.mqtt.url ?? `its own broker on ${site.mqtt.embedded_host}:${site.mqtt.embedded_port}`}`,
+    `MQTT     ${site.mqtt.url ?? ownBroker(site.mqtt)}`,
     ...(site.mqtt.url === null ? [] : [brokerText(site)]),
     `Influx   ${site.influx === null ? 'none: the local store alone serves' : `${site.influx.url}, database ${site.influx.database}`}`,
     `Store    ${site.store.folder}`,
-    `Page     http://${site.http.host}:${site.http.port}${site.http.path_prefix}`,
+    `Page     http${site.http.tls ? 's' : ''}://${site.http.host}:${site.http.port}${site.http.path_prefix}`,
   ];
   const open = notesText(siteNotes(site));
   return [head.join('\n'), ...(open === '' ? [] : [open]), ...units.map(unitText)].join('\n\n');
 }
+
+const ownBroker = ({ embedded_host, embedded_port, embedded_tls }: SiteConfig['mqtt']) =>
+  `its own broker on ${embedded_host}:${embedded_port}${embedded_tls ? ', by TLS' : ''}`;
 
 /** What mosquitto keeps of itself for a subscriber that is away [messages]. */
 const QUEUED = 1000;

@@ -21,9 +21,9 @@ export function siteNotes(site: SiteConfig, now_ms = Date.now()): string[] {
       `http.host ${http.host}: without http.tls tokens and figures cross the network in the clear`,
     );
   }
-  if (mqtt.url === null && !staysHere(mqtt.embedded_host)) {
+  if (mqtt.url === null && !staysHere(mqtt.embedded_host) && !mqtt.embedded_tls) {
     notes.push(
-      `mqtt.embedded_host ${mqtt.embedded_host}: its own broker has no TLS; tokens and readings cross the network in the clear`,
+      `mqtt.embedded_host ${mqtt.embedded_host}: without mqtt.embedded_tls tokens and readings cross the network in the clear`,
     );
   }
   const plain = (url: string | null | undefined) => /^(mqtt|tcp|ws|http):/.test(url ?? '');
@@ -36,6 +36,7 @@ export function siteNotes(site: SiteConfig, now_ms = Date.now()): string[] {
   return [
     ...notes,
     ...certificateNotes('http.tls.cert_file', http.tls?.cert, now_ms),
+    ...certificateNotes('mqtt.embedded_tls.cert_file', mqtt.embedded_tls?.cert, now_ms),
     ...certificateNotes('mqtt.tls.cert_file', mqtt.tls?.cert, now_ms),
     ...certificateNotes('mqtt.tls.ca_file', mqtt.tls?.ca, now_ms),
     ...certificateNotes('influx.tls.ca_file', influx?.tls?.ca, now_ms),

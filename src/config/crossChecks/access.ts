@@ -76,6 +76,10 @@ function openFaults(site: SiteBlock): CrossFault[] {
 function tlsFaults({ mqtt, influx, notify }: SiteBlock): CrossFault[] {
   const faults: CrossFault[] = [];
   const { tls } = mqtt;
+  if (mqtt.embedded_tls !== undefined && mqtt.url !== undefined) {
+    const expected = 'no address, as embedded_tls is for a broker of its own';
+    faults.push(cross(['mqtt', 'url'], mqtt.url, expected, { others: [['mqtt', 'embedded_tls']] }));
+  }
   if (tls !== undefined && !/^(mqtts|tls|wss):/.test(mqtt.url ?? '')) {
     const expected = 'an address that begins with mqtts://, as mqtt.tls stands beside it';
     faults.push(cross(['mqtt', 'url'], mqtt.url, expected, { others: [['mqtt', 'tls']] }));

@@ -56,6 +56,17 @@ export const mqttSchema = z.strictObject({
     '127.0.0.1',
   ).default('127.0.0.1'),
   embedded_port: key(port(), '-', 'Port of its own broker; 0 = any free one.', 1883).default(1883),
+  embedded_tls: section(
+    ownCertificate.optional(),
+    'Certificate of its own broker, read again when it changes; TLS 1.2 at least, and nothing else.',
+    'plain TCP',
+  ),
+  embedded_packet_max_kB: key(
+    z.int().min(16).max(250_000),
+    'kB',
+    'A client of its own broker that sends a greater packet is cut off.',
+    1200,
+  ).default(1200),
   client_id: key(z.string().min(1).max(128), '-', 'Client id at the broker.', 'rockhour').default(
     'rockhour',
   ),

@@ -93,7 +93,7 @@ describe('its own broker, with tokens', () => {
     access.replace(list);
     [refused, came] = [[], []];
     broker = new EmbeddedBroker('127.0.0.1', 0, {
-      ...{ access, client_id: 'rockhour', ...topics },
+      ...{ access, own_ids: ['rockhour', 'rockhour-sparkplug'], ...topics },
       refused: (what, text) => refused.push(`${what}: ${text}`),
     });
     await broker.start();
@@ -114,6 +114,7 @@ describe('its own broker, with tokens', () => {
       { username: 'a_view', password: tokens.feed },
       { username: 'rockhour', password: 'rockhour' },
       { clientId: 'rockhour', username: 'a_configure', password: tokens.configure },
+      { clientId: 'rockhour-sparkplug', username: 'a_feed', password: tokens.feed },
     ];
     for (const options of wrong) await expect(open(options)).rejects.toThrow(/authorized|refused/i);
     expect(refused).toHaveLength(wrong.length);
@@ -155,6 +156,21 @@ describe('its own broker, with tokens', () => {
       { id: '4', action: 'out_of_service', why: 'x', who: 'a_configure' },
     ]);
     expect(refused).toHaveLength(2);
+  });
+
+  it('without tokens lets all in, but under no id of its own links, nor to what is the broker’s', async () => {
+    access.replace([]);
+    await expect(open({ clientId: 'rockhour' })).rejects.toThrow(/authorized/i);
+    const guest = await open({ clientId: 'guest' });
+    // How one broker tells another to end a client of this id.
+    await guest.publishAsync('$SYS/another/new/clients', 'rockhour', { qos: 1 });
+    await guest.publishAsync('anything', 'x', { qos: 1 });
+    await expect.poll(() => came).toEqual(['anything x']);
+    expect(link.connected).toBe(true);
+    expect(refused).toEqual([
+      'logins: rockhour as nobody: the client id is taken',
+      'publishes: guest to $SYS/another/new/clients',
+    ]);
   });
 
   it('shows what rockhour says to who may view, and readings to nobody', async () => {

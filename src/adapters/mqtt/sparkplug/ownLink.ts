@@ -1,10 +1,13 @@
-import { connect, type IClientOptions, type MqttClient } from 'mqtt';
+import type { IClientOptions, MqttClient } from 'mqtt';
 import { reasonOf } from '../../../errors.js';
-import { type LinkOptions, tlsOptions } from '../link.js';
+import { type LinkOptions, openClient } from '../link.js';
 import type { OwnNode } from './ownNode.js';
 
 export interface OwnLinkOptions
-  extends Pick<LinkOptions, 'url' | 'client_id' | 'username' | 'password' | 'tls' | 'protocol'> {
+  extends Pick<
+    LinkOptions,
+    'url' | 'inside' | 'client_id' | 'username' | 'password' | 'tls' | 'protocol'
+  > {
   readonly node: OwnNode;
   /** Number of the last connection, kept over restarts; null before the first. */
   lastBdSeq(): number | null;
@@ -13,6 +16,9 @@ export interface OwnLinkOptions
   /** Not connected, and why; once per outage. */
   down(reason: string): void;
 }
+
+/** Client id of the edge node's connection, beside that of the other one. */
+export const nodeClientId = (client_id: string) => `${client_id}-sparkplug`;
 
 const RECONNECT_MS = 1000;
 const CONNECT_TIMEOUT_MS = 10_000;
@@ -77,14 +83,14 @@ export class OwnLink {
 
   private connect(): void {
     this.retry = null;
-    const { node, url } = this.options;
+    const { node } = this.options;
     if (this.isUsed) {
       this.bdSeq = this.bdSeq === null ? 0 : (this.bdSeq + 1) % 256;
       this.options.keepBdSeq(this.bdSeq);
       this.isUsed = false;
     }
     const bdSeq = this.bdSeq!;
-    const client = connect(url(), this.clientOptions(bdSeq));
+    const client = openClient(this.options, this.clientOptions(bdSeq));
     this.client = client;
     client.on('connect', () => {
       this.isUsed = true;
@@ -128,7 +134,6 @@ export class OwnLink {
     const { node, client_id, username, password, protocol } = this.options;
     return {
       ...{ clientId: client_id, clean: true, protocolVersion: protocol },
-      ...tlsOptions(this.options),
       ...(username === null ? {} : { username }),
       ...(password === null ? {} : { password }),
       will: { ...node.death(bdSeq), qos: 1, retain: false },
