@@ -191,7 +191,8 @@ export function fileReasonOf(thrown: unknown): string {
 
 /** Credentials by their form: in addresses and queries, in headers, tokens of rockhour itself. */
 const CREDENTIALS: readonly (readonly [RegExp, string])[] = [
-  [/([a-z][a-z0-9+.-]*:\/\/)[^\s/@]+@/gi, '$1***@'],
+  // Of bounded length: else a long word would be looked at from each of its letters to its end.
+  [/([a-z][a-z0-9+.-]{0,30}:\/\/)[^\s/@]+@/gi, '$1***@'],
   [/([?&](?:p|password|token|secret)=)[^&\s"']+/gi, '$1***'],
   [/\b(Bearer|Basic) +[\w+/=.~-]{8,}/gi, '$1 ***'],
   [/rockhour-[A-Za-z0-9_-]{43}/g, '***'],

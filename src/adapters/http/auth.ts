@@ -62,6 +62,7 @@ export function addGuard(app: HttpApp, entrance: Entrance): Guard {
     );
   });
   app.addHook('onRequest', async (request, reply) => {
+    refuseForeignPage(request);
     const role = request.routeOptions.config.role ?? 'public';
     const { access } = entrance;
     if (access.isOpen) {
@@ -169,6 +170,30 @@ export function requireOwnPage({ headers }: FastifyRequest): void {
       expected: 'the page of this address; programs send Authorization: Bearer',
     },
   );
+}
+
+/**
+ * A page of somewhere else may send somebody here, by a link; all else that it asks for, it asks
+ * blindly: to do something in the name of the operator at whose browser it is, or to use up what
+ * this machine may ask. It is turned away before it is counted. A program says neither of the two.
+ * @throws HttpFault 403
+ */
+function refuseForeignPage({ headers, method }: FastifyRequest): void {
+  // No page can send this one along without asking first, and nobody answers that question.
+  if (headers.authorization !== undefined) return;
+  const { origin, host } = headers;
+  const [site, mode, dest] = ['site', 'mode', 'dest'].map((part) => headers[`sec-fetch-${part}`]);
+  if (site === undefined) {
+    if (isReading(method) || origin === undefined || isOrigin(origin, host)) return;
+  } else {
+    if (site === 'same-origin' || site === 'none') return;
+    if (isReading(method) && mode === 'navigate' && (dest ?? 'document') === 'document') return;
+  }
+  throw new HttpFault(403, 'other_origin', 'a page of another address asks for this', {
+    field: site === undefined ? 'origin' : 'sec-fetch-site',
+    value: String(site ?? origin),
+    expected: 'the page of this address; programs send neither',
+  });
 }
 
 function isOrigin(origin: string | undefined, host: string | undefined): boolean {

@@ -107,6 +107,41 @@ describe('floods', () => {
     expect((await ask('/api/units', { from: '2001:db8:0:1::1' })).statusCode).toBe(200);
   });
 
+  it('by a page of somewhere else, in the browser of an operator, use up nothing of theirs', async () => {
+    const access = new Access([]);
+    const { app } = await testApp({ access, tuning: { questions_per_min: CEILING } });
+    ends.push(() => app.close());
+    const ask = async (headers: Record<string, string>, url = '/api/units') =>
+      (await app.inject({ url, headers: { host: 'localhost:8080', ...headers } })).statusCode;
+    const foreign = { 'sec-fetch-site': 'cross-site', 'sec-fetch-mode': 'no-cors' };
+    const frame = { ...foreign, 'sec-fetch-mode': 'navigate', 'sec-fetch-dest': 'iframe' };
+    const stream = { ...foreign, 'sec-fetch-mode': 'cors', accept: 'text/event-stream' };
+    for (let i = 0; i < CEILING; i++) {
+      expect(await ask(foreign)).toBe(403);
+      expect(await ask(foreign, '/api/units/north/hours?power_MW=1')).toBe(403);
+      expect(await ask(frame, '/')).toBe(403);
+      expect(await ask(stream, '/api/stream')).toBe(403);
+      expect(await ask({ ...foreign, 'sec-fetch-site': 'same-site' })).toBe(403);
+    }
+    // Another program of this machine changes nothing by a form or a script, even as JSON.
+    const post = (headers: Record<string, string>) =>
+      app.inject({
+        ...{ method: 'POST', url: '/api/alarms/acknowledge', payload: '{}' },
+        headers: { host: 'localhost:8080', 'content-type': 'application/json', ...headers },
+      });
+    for (const headers of [{ origin: 'http://elsewhere' }, { origin: 'null' }, foreign]) {
+      const answer = await post(headers as Record<string, string>);
+      expect([answer.statusCode, answer.json().error.code]).toEqual([403, 'other_origin']);
+    }
+    // A link leads here, the page asks for itself, a program as well.
+    const link = { ...foreign, 'sec-fetch-mode': 'navigate', 'sec-fetch-dest': 'document' };
+    expect(await ask(link, '/')).toBe(200);
+    expect(await ask({ 'sec-fetch-site': 'same-origin' })).toBe(200);
+    expect((await post({ origin: 'http://localhost:8080' })).statusCode).toBe(400);
+    expect(await ask({})).toBe(200);
+    expect(await ask({})).toBe(429);
+  });
+
   it('of what rolls the stores forward have a lower ceiling, for each token its own', async () => {
     const { ask } = await asked(false, { hours_per_min: 2 });
     const url = '/api/units/north/hours?power_MW=1';
