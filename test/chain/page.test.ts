@@ -174,7 +174,7 @@ describe.skipIf(!chromium || !mosquitto)('the page before a running daemon', () 
     await page.waitForSelector('[data-field="verdict"]');
     expect(await text('verdict')).toContain('Does not hold');
     expect(await text('first-short')).toContain(
-      `${fixed(check.first_shortfall.certain.MWh_el, 2)} MWh el`,
+      `${fixed(check.first_shortfall.certain.MWh_el, 2)} MWhel lacking`,
     );
     const rows = page.locator('.schedule-view table tr[data-short]');
     const short = check.blocks.filter(

@@ -51,7 +51,7 @@ describe('figures in words', () => {
   });
 
   it('never says that a figure is certain', () => {
-    expect(withSigma(0.989, 0.0045, 2)).toBe('0.99 ± <0.01');
+    expect(withSigma(0.989, 0.0045, 2)).toBe('0.99 ± 0.01');
     expect(withSigma(0.989, 0.005, 2)).toBe('0.99 ± 0.01');
     expect(withSigma(0.989, null, 2)).toBe('0.99');
     expect(withSigma(null, 0.1, 2)).toBe(DASH);

@@ -419,15 +419,15 @@ describe.skipIf(!chromium)('the page, in a real browser', { timeout: 30_000 }, (
     const cell = (name: string) => south.locator(`[data-cell="${name}"]`).textContent();
     expect(await cell('mode')).toBe('discharging');
     expect(await cell('soc')).toBe('62 %');
-    expect(await cell('hours')).toBe('4 h 46 minat 2 MW');
-    expect(await cell('energy')).toBe('9.5');
-    expect(await cell('power')).toBe('1.85delivered');
+    expect(await cell('hours')).toBe('4 h 46 minat 2 MWel');
+    expect(await cell('energy')).toBe('9.52 MWhel');
+    expect(await cell('power')).toBe('1.85 MWeldelivered');
     expect(await cell('well')).toBe('Alarm: outlet near limit, hot');
     expect(await cell('age')).toMatch(/^\d+ s old$/);
     expect(await page.locator('[data-unit-row="north"] [data-cell="well"]').textContent()).toBe(
       'As it should be, but 4 thermocouples are left out.',
     );
-    expect(await field(page, 'verdict').textContent()).toBe('0 of 2 units as they should be.');
+    expect(await field(page, 'verdict').textContent()).toBe('Alarm: 1 of 2 units.');
     await south.locator('a').click();
     await page.waitForSelector('main[data-sheet="now"] [data-store="hot"]');
     expect(await page.locator('[data-unit="south"]').getAttribute('aria-pressed')).toBe('true');

@@ -100,14 +100,14 @@ describe('whether all is well', () => {
     } as const;
     expect(siteVerdict(units.map((one, i) => (i < 1 ? { ...one, ...known } : one)))).toEqual({
       level: 'known',
-      words: 'Nothing new. 7 of 8 units as they should be.',
-      because: 'U0: Nothing new. Known: hot_axis_03',
+      words: 'Nothing new. Known: 1 of 8 units; 7 as they should be.',
+      because: 'U0: hot_axis_03',
     });
     expect(siteVerdict([{ name: 'U0', ...known }])).toMatchObject({ words: known.words });
     const six = units.map((one, i) => (i < 6 ? { ...one, ...stale } : one));
     expect(siteVerdict(six)).toEqual({
       level: 'unknown',
-      words: '2 of 8 units as they should be.',
+      words: 'Not known: 6 of 8 units; 2 as they should be.',
       because: 'U0: Not known. · U1: Not known. · U2: Not known. · U3: Not known. · and 2 more',
     });
   });

@@ -8,6 +8,8 @@ import { MaintenanceSheet } from '../maintenance/MaintenanceSheet.js';
 import { OperatorSheet } from '../operator/OperatorSheet.js';
 import { SiteSheet } from '../site/SiteSheet.js';
 import { TraderSheet } from '../trader/TraderSheet.js';
+import { zoneWords } from '../trader/times.js';
+import { zoneOf } from '../trader/wire.js';
 import { Head } from './Head.js';
 import { LogIn } from './LogIn.js';
 
@@ -101,10 +103,14 @@ function Foot() {
         protection systems, local codes and licensed people.
       </p>
       <LoggedIn />
-      <p id="about">{`rockhour ${model.version.value} · times in ${zoneText(new Date())}`}</p>
+      <p id="about">{`rockhour ${model.version.value} · times in ${timesIn()}`}</p>
     </footer>
   );
 }
+
+/** Blocks are sold in the times of the connection, and so are those of the Offer sheet. */
+const timesIn = (): string =>
+  route.value.sheet === 'offer' ? zoneWords(zoneOf(model.unit.value)) : zoneText(new Date());
 
 /** Whose log-in this is, and its end; nothing where rockhour asks for no tokens. */
 function LoggedIn() {

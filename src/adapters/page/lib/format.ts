@@ -10,7 +10,7 @@ export function fixed(value: number | null | undefined, digits: number): string 
   return value < 0 && Number(text) !== 0 ? MINUS + text : text;
 }
 
-/** A value with its sigma; one too small for the digits is `<0.01`, never `0.00`. */
+/** A value with its sigma; one too small for the digits is rounded up to the last, never `0.00`. */
 export function withSigma(
   value: number | null | undefined,
   sigma: number | null | undefined,
@@ -19,7 +19,7 @@ export function withSigma(
   const text = fixed(value, digits);
   if (text === DASH || sigma === null || sigma === undefined) return text;
   const least = 10 ** -digits;
-  return `${text} ± ${sigma > 0 && sigma < least / 2 ? `<${least.toFixed(digits)}` : fixed(sigma, digits)}`;
+  return `${text} ± ${fixed(sigma > 0 ? Math.max(sigma, least) : sigma, digits)}`;
 }
 
 export function percent(share: number | null | undefined, digits = 1): string {

@@ -94,7 +94,9 @@ export function verdictOf(
   };
 }
 
-const LEAD = { urgent: 'Alarm', care: 'Alert', known: 'Nothing new. Known' } as const;
+/** How the words begin where all that stands is acknowledged. */
+export const KNOWN_LEAD = 'Nothing new. Known';
+const LEAD = { urgent: 'Alarm', care: 'Alert', known: KNOWN_LEAD } as const;
 
 function ofEvent(
   level: keyof typeof LEAD,

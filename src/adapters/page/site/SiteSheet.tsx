@@ -68,7 +68,9 @@ export function SiteSheet() {
               Net
               <Unit name="MW_el" />
             </th>
-            <th scope="col">Is all well?</th>
+            <th scope="col" class="well">
+              Is all well?
+            </th>
             <th scope="col" class="number">
               Age
             </th>
@@ -116,13 +118,24 @@ function UnitRow({ entry }: { entry: UnitEntry }) {
       </td>
       <td class="number" data-cell="hours">
         {hoursText(firm?.hours.p90)}
-        {firm !== null && <small>{`at ${power(firm.power_MW)} MW`}</small>}
+        {firm !== null && (
+          <small>
+            {`at ${power(firm.power_MW)}`}
+            <Unit name="MW_el" />
+          </small>
+        )}
       </td>
       <td class="number" data-cell="energy">
-        {fixed(firm?.energy_MWh_el.p90, 1)}
+        {fixed(firm?.energy_MWh_el.p90, 2)}
+        <span class="narrow">
+          <Unit name="MWh_el" />
+        </span>
       </td>
       <td class="number" data-cell="power">
         {fixed(delivered === null ? null : Math.abs(delivered), 2)}
+        <span class="narrow">
+          <Unit name="MW_el" />
+        </span>
         <small>{powerWay(delivered)}</small>
       </td>
       <td class="well" data-cell="well">

@@ -1,7 +1,7 @@
 import { counted } from '../lib/alarmOrder.js';
 import type { Connection, UnitEntry } from '../lib/model.js';
 import { trustOf } from '../lib/trust.js';
-import { type Level, type Verdict, verdictOf } from '../lib/verdict.js';
+import { KNOWN_LEAD, type Level, type Verdict, verdictOf } from '../lib/verdict.js';
 import type { LeftOut, Standing } from '../lib/wire.js';
 
 export interface UnitVerdict extends Verdict {
@@ -9,6 +9,8 @@ export interface UnitVerdict extends Verdict {
 }
 
 const ORDER: readonly Level[] = ['urgent', 'unknown', 'care', 'known', 'well'];
+/** Those that ask for something. */
+const ASKED = ORDER.slice(0, 3);
 /** So many units are named; of more the number is told. */
 const NAMED = 4;
 
@@ -29,37 +31,42 @@ export function leftOutVerdict({ name, faults }: LeftOut): UnitVerdict {
   return { name, level: 'unknown', words, because: '' };
 }
 
+/** What the units are counted for, by the worst that is to be said of any. */
+const COUNTED: Readonly<Record<Exclude<Level, 'well'>, string>> = {
+  urgent: 'Alarm',
+  unknown: 'Not known',
+  care: 'To be looked at',
+  known: KNOWN_LEAD,
+};
+
 /** The worst of all units in a few words, and which units it is about. */
 export function siteVerdict(all: readonly UnitVerdict[]): Verdict {
   const worst = ORDER.find((level) => all.some((one) => one.level === level)) ?? 'unknown';
-  if (all.length === 0) return { level: worst, words: 'No units yet.', because: '' };
-  const well = all.filter(({ level }) => level === 'well').length;
-  const words = `${well} of ${counted(all.length, 'unit')} as ${well === 1 ? 'it' : 'they'} should be.`;
-  const asked = ORDER.slice(0, 3).flatMap((level) => all.filter((one) => one.level === level));
-  const [only] = all;
-  if (all.length === 1 && only !== undefined && only.level !== 'well') return only;
-  if (asked.length === 0) {
-    const known = all.filter(({ level }) => level === 'known');
-    if (known.length > 0) {
-      // What is acknowledged asks for nothing, but it is not as it should be.
-      const where = known.slice(0, NAMED).map(({ name, words: what }) => `${name}: ${what}`);
-      const more = known.length > NAMED ? [`and ${known.length - NAMED} more`] : [];
-      return {
-        level: worst,
-        words: `Nothing new. ${words}`,
-        because: [...where, ...more].join(' · '),
-      };
-    }
-    return {
-      level: worst,
-      words:
-        all.length === 1
-          ? 'The unit is as it should be.'
-          : `All ${counted(all.length, 'unit')} as they should be.`,
-      because: 'Nothing stands.',
-    };
+  const [first] = all;
+  if (first === undefined) return { level: worst, words: 'No units yet.', because: '' };
+  const units = counted(all.length, 'unit');
+  if (worst === 'well') {
+    const words =
+      all.length === 1 ? 'The unit is as it should be.' : `All ${units} as they should be.`;
+    return { level: worst, words, because: 'Nothing stands.' };
   }
-  const named = asked.slice(0, NAMED).map(({ name, words: what }) => `${name}: ${what}`);
-  const rest = asked.length > NAMED ? [`and ${asked.length - NAMED} more`] : [];
-  return { level: worst, words, because: [...named, ...rest].join(' · ') };
+  if (all.length === 1) return first;
+  const own = all.filter(({ level }) => level === worst);
+  const well = all.filter(({ level }) => level === 'well').length;
+  const rest = well === 0 ? '' : `; ${well} as ${well === 1 ? 'it' : 'they'} should be`;
+  // What is acknowledged asks for nothing: it is named only where nothing else is.
+  const asked = worst === 'known' ? own : ASKED.flatMap((level) => ofLevel(all, level));
+  const named = asked.slice(0, NAMED).map(({ name, words }) => `${name}: ${plain(words)}`);
+  const more = asked.length > NAMED ? [`and ${asked.length - NAMED} more`] : [];
+  return {
+    level: worst,
+    words: `${COUNTED[worst]}: ${own.length} of ${units}${rest}.`,
+    because: [...named, ...more].join(' · '),
+  };
 }
+
+const ofLevel = (all: readonly UnitVerdict[], level: Level) =>
+  all.filter((one) => one.level === level);
+
+/** Without the lead that the words of the site have already. */
+const plain = (words: string): string => words.replace(`${KNOWN_LEAD}: `, '');

@@ -41,17 +41,40 @@ export function Axes({
       ))}
       {upName !== undefined && (
         <text class="name" x={0} y={top - 12}>
-          {upName}
+          <Indexed text={upName} />
         </text>
       )}
       {acrossName !== undefined && (
         <text class="name" x={right} y={bottom + 33} text-anchor="end">
-          {acrossName}
+          <Indexed text={acrossName} />
         </text>
       )}
     </g>
   );
 }
+
+/** Words of a drawing; what stands after `_` in one is its index: `MWh_el`. */
+export function Indexed({ text }: { text: string }) {
+  const parts = text.split(/_(el|th)\b/);
+  return (
+    <>
+      {parts.map((part, i) =>
+        i % 2 === 0 ? (
+          <tspan key={part} dy={i === 0 ? 0 : -INDEX_PX}>
+            {part}
+          </tspan>
+        ) : (
+          <tspan key={part} class="index" dx="0.5" dy={INDEX_PX}>
+            {part}
+          </tspan>
+        ),
+      )}
+    </>
+  );
+}
+
+/** An index stands so much lower [px]. */
+const INDEX_PX = 3;
 
 /** The hatch of what is missing; its lines take the colour of who uses it. */
 export function Hatch({ id }: { id: string }) {

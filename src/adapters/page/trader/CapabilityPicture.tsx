@@ -24,7 +24,7 @@ export function CapabilityPicture({ capability }: { capability: Capability }) {
   const { discharge, charge, state_of_charge: soc } = capability;
   const gives = greatestAt(discharge, soc);
   const takes = greatestAt(charge, soc);
-  const words = `Now, at ${percent(soc, 0)} %: gives up to ${fixed(gives, 2)} MW, takes up to ${fixed(takes, 2)} MW`;
+  const words = `Now, at ${percent(soc, 0)} %: gives up to ${fixed(gives, 2)} MW electric, takes up to ${fixed(takes, 2)} MW electric`;
   return (
     <>
       <p data-field="capability-now">{words}.</p>
@@ -47,7 +47,9 @@ export function CapabilityPicture({ capability }: { capability: Capability }) {
             <tr>
               <th scope="col">direction</th>
               <th scope="col">charge, %</th>
-              <th scope="col">MW</th>
+              <th scope="col">
+                MW<sub>el</sub>
+              </th>
               <th scope="col">limited by</th>
             </tr>
           </thead>
@@ -110,7 +112,7 @@ function Drawing({
       <Axes
         {...{ frame, x, y, up }}
         across={across.map((value) => [value, `${value * 100}`])}
-        upName="MW el"
+        upName="MW_el"
         acrossName="state of charge, %"
       />
       {[area(discharge, 1), area(charge, -1)].map(

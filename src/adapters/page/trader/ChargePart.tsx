@@ -1,4 +1,5 @@
 import { signal } from '@preact/signals';
+import { Fragment } from 'preact';
 import { useEffect, useState } from 'preact/hooks';
 import { fixed, hoursText, power } from '../lib/format.js';
 import { api, model } from '../lib/page.js';
@@ -77,7 +78,7 @@ export function ChargePart() {
           ask(text);
         }}
       >
-        <Field id="offer-charging" label="Charging powers, MW" wide>
+        <Field id="offer-charging" label="Charging powers, MW electric" wide>
           <input
             id="offer-charging"
             name="charging"
@@ -135,21 +136,24 @@ function HeadroomView({ headroom }: { headroom: Headroom }) {
           </thead>
           <tbody>
             {answers.map((answer) => (
-              <tr key={answer.power_MW_el} data-charge={answer.power_MW_el}>
-                <th scope="row">
-                  <button
-                    type="button"
-                    aria-pressed={answer === one}
-                    onClick={() => {
-                      chosen.value = answer.power_MW_el;
-                    }}
-                  >
-                    {power(answer.power_MW_el)}
-                    <Unit name="MW" />
-                  </button>
-                </th>
-                <HeadroomCells answer={answer} />
-              </tr>
+              <Fragment key={answer.power_MW_el}>
+                <tr data-charge={answer.power_MW_el}>
+                  <th scope="row">
+                    <button
+                      type="button"
+                      aria-pressed={answer === one}
+                      onClick={() => {
+                        chosen.value = answer.power_MW_el;
+                      }}
+                    >
+                      {power(answer.power_MW_el)}
+                      <Unit name="MW_el" />
+                    </button>
+                  </th>
+                  <HeadroomCells answer={answer} />
+                </tr>
+                <Limits answer={answer} />
+              </Fragment>
             ))}
           </tbody>
         </table>
@@ -177,14 +181,6 @@ function HeadroomCells({ answer }: { answer: HeadroomAnswer }) {
       </td>
     );
   }
-  const notes = [
-    answer.limited_by !== null && causeWords(answer.limited_by),
-    answer.derated_after_hours !== null &&
-      `takes less after ${hoursText(answer.derated_after_hours)}${
-        answer.derated_to_MW_el === null ? '' : `, down to ${power(answer.derated_to_MW_el)} MW`
-      }: greatest flow`,
-    firstMinutesWords(answer.first_minutes),
-  ].filter((one) => typeof one === 'string');
   return (
     <>
       <td>
@@ -196,14 +192,34 @@ function HeadroomCells({ answer }: { answer: HeadroomAnswer }) {
       </td>
       <td>
         {answer.ends_by === null ? 'nothing in the time looked ahead' : chargeEnd(answer.ends_by)}
+      </td>
+    </>
+  );
+}
+
+/** What limits a power, in a row of its own: words need the width of the table. */
+function Limits({ answer }: { answer: HeadroomAnswer }) {
+  const { limited_by, derated_after_hours, derated_to_MW_el: to_MW } = answer;
+  if (answer.refused !== null) return null;
+  const notes = [
+    limited_by !== null && causeWords(limited_by),
+    derated_after_hours !== null &&
+      `takes less after ${hoursText(derated_after_hours)}${
+        to_MW === null ? '' : `, down to ${power(Number(to_MW.toPrecision(3)))} MW electric`
+      }: greatest flow`,
+    firstMinutesWords(answer.first_minutes),
+  ].filter((one) => typeof one === 'string');
+  if (notes.length === 0) return null;
+  return (
+    <tr class="limits">
+      <td colSpan={5}>
         {notes.map((note) => (
           <small key={note} class="care">
-            {' '}
             ▲ {note}
           </small>
         ))}
       </td>
-    </>
+    </tr>
   );
 }
 
@@ -226,8 +242,8 @@ function CapabilityView({ unit }: { unit: string }) {
     <section class="capability" aria-labelledby="capability-title">
       <h2 id="capability-title">Greatest power both ways, against state of charge</h2>
       <p class="help">
-        As fronts lie that a full charge from now leaves, for an optimiser; for the energy from now
-        take the figures above.
+        For an optimiser: the greatest power at each state of charge, with the fronts where a full
+        charge from now would leave them. For the energy from now on take the figures above.
       </p>
       {answer === null && asked.since_ms === null && (
         <p>

@@ -32,7 +32,8 @@ export function OfferDetail({
     return (
       <div class="closely">
         <h2>
-          {power(offer.power_MW_el)} MW from {clock(offer.start)}
+          {power(offer.power_MW_el)}
+          <Unit name="MW_el" /> from {clock(offer.start)}
         </h2>
         <p class="care">✕ Not offered: {causeWords(offer.refused)}.</p>
       </div>
@@ -45,7 +46,8 @@ export function OfferDetail({
   return (
     <div class="closely" data-offer={offer.power_MW_el}>
       <h2>
-        {power(offer.power_MW_el)} MW from {clock(offer.start)}
+        {power(offer.power_MW_el)}
+        <Unit name="MW_el" /> from {clock(offer.start)}
       </h2>
       <p class="large">
         <strong data-field="chosen-energy">{fixed(at?.energy_MWh_el, 2)}</strong>

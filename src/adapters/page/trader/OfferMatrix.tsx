@@ -56,7 +56,7 @@ export function OfferMatrix({
             <tr key={own} data-power={own}>
               <th scope="row">
                 {power(own)}
-                <Unit name="MW" />
+                <Unit name="MW_el" />
               </th>
               {starts.map((start) => {
                 const offer = offerAt(table, own, start);

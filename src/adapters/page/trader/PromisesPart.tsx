@@ -5,6 +5,7 @@ import { hrefOf, route } from '../lib/route.js';
 import { useAnswer } from '../lib/useAnswer.js';
 import { Choices } from '../parts/Choices.js';
 import { Unit } from '../parts/Unit.js';
+import { DayAndTime } from './DayAndTime.js';
 import { KeptTable } from './KeptTable.js';
 import { sourceNow } from './moved.js';
 import { DeliveredPicture, SharePicture } from './PromisePictures.js';
@@ -189,7 +190,9 @@ function Tested({ report, zone }: { report: OfferReport; zone: string | null }) 
           <thead>
             <tr>
               <th scope="col">began</th>
-              <th scope="col">MW</th>
+              <th scope="col">
+                MW<sub>el</sub>
+              </th>
               <th scope="col">
                 firm, MWh<sub>el</sub>
               </th>
@@ -271,8 +274,10 @@ function History({ history, zone }: { history: KeptTables; zone: string | null }
                 <th scope="row">
                   <TableLink no={no} />
                 </th>
-                <td>{typedTime(zone, asked)}</td>
-                <td>{start === undefined ? '–' : typedTime(zone, start)}</td>
+                <td>
+                  <DayAndTime text={typedTime(zone, asked)} />
+                </td>
+                <td>{start === undefined ? '–' : <DayAndTime text={typedTime(zone, start)} />}</td>
                 <td>
                   {offers
                     .filter((offer) => offer.start === start)
@@ -293,11 +298,19 @@ function History({ history, zone }: { history: KeptTables; zone: string | null }
 /** An offer in one line, for a table of the past. */
 function OfferLine({ offer }: { offer: OfferHead }) {
   const { power_MW_el, hours, energy_MWh_el, refused } = offer;
-  if (refused !== null) return <span class="line">{power(power_MW_el)} MW: refused</span>;
+  if (refused !== null) {
+    return (
+      <span class="line">
+        {power(power_MW_el)}
+        <Unit name="MW_el" />: refused
+      </span>
+    );
+  }
   return (
     <span class="line">
-      {power(power_MW_el)} MW: {fixed(energy_MWh_el.p90, 2)}
-      <Unit name="MWh_el" />, {hoursText(hours.p90)}
+      {power(power_MW_el)}
+      <Unit name="MW_el" />: {fixed(energy_MWh_el.p90, 2)}
+      <Unit name="MWh_el" />, <span class="whole">{hoursText(hours.p90)}</span>
     </span>
   );
 }

@@ -38,12 +38,18 @@ export function ScheduleFacts({ check, zone }: { check: ScheduleCheck; zone: str
       <dl class="facts">
         <dt>First short</dt>
         <dd data-field="first-short">
-          {certain === null ? 'nothing, with that certainty' : shortWords(certain, clock)}
+          {certain === null ? (
+            'nothing, with that certainty'
+          ) : (
+            <ShortWords short={certain} clock={clock} />
+          )}
         </dd>
         {p50 !== null && (
           <>
             <dt>Even odds</dt>
-            <dd>short {shortWords(p50, clock)}</dd>
+            <dd>
+              <ShortWords short={p50} clock={clock} />
+            </dd>
           </>
         )}
         {check.unmet.map((one) => (
@@ -94,8 +100,20 @@ function Fact({
 /** Above 0 the unit delivers, in a schedule. */
 const netWay = (MWh: number): string => (MWh < 0 ? 'drawn' : 'delivered');
 
-const shortWords = ({ time, MWh_el, cause }: Short, clock: (time: string) => string): string =>
-  `from ${clock(time)}, ${fixed(MWh_el, 2)} MWh el to the end of the run: ${causeWords(cause)}`;
+function ShortWords({
+  short: { time, MWh_el, cause },
+  clock,
+}: {
+  short: Short;
+  clock(time: string): string;
+}) {
+  return (
+    <>
+      from {clock(time)}: {causeWords(cause)}; {fixed(MWh_el, 2)}
+      <Unit name="MWh_el" /> lacking to the end of the run
+    </>
+  );
+}
 
 /** How long a run could go on, or by how much it is too long, and why. */
 function runWords(run: CheckedRun, looked_h: number, clock: (time: string) => string): string {
@@ -161,7 +179,9 @@ export function Nearest({
               <th scope="col">from</th>
               <th scope="col">to</th>
               <th scope="col">mode</th>
-              <th scope="col">MW</th>
+              <th scope="col">
+                MW<sub>el</sub>
+              </th>
             </tr>
           </thead>
           <tbody>
@@ -189,17 +209,21 @@ export function Nearest({
 /** Block by block, what was asked for and what comes of it. */
 export function BlockTable({ check, zone }: { check: ScheduleCheck; zone: string | null }) {
   const clock = (time: string) => shortTime(zone, time, Date.parse(check.time));
+  const ramps = check.blocks.reduce((sum, { ramp_MWh_el }) => sum + ramp_MWh_el, 0);
   return (
     <Scrolled label="Blocks of the schedule">
       <table class="plain tight">
         <caption>
           Block by block, MWh<sub>el</sub> in the direction of the block
+          {ramps > 0 && `; ${fixed(ramps, 2)} that start-ups take are no shortfall`}
         </caption>
         <thead>
           <tr>
             <th scope="col">block</th>
             <th scope="col">mode</th>
-            <th scope="col">MW</th>
+            <th scope="col">
+              MW<sub>el</sub>
+            </th>
             <th scope="col">asked</th>
             <th scope="col">{certaintyWords(check.certainty)}</th>
             <th scope="col">expected</th>

@@ -3,6 +3,7 @@ import type { AnswerFault } from '../lib/api.js';
 import { fixed, MODE_WORDS, power } from '../lib/format.js';
 import { model } from '../lib/page.js';
 import { Choices } from '../parts/Choices.js';
+import { DayAndTime } from './DayAndTime.js';
 import { sourceNow } from './moved.js';
 import {
   BlockTable,
@@ -83,7 +84,7 @@ export function SchedulePart() {
           }}
         >
           <label class="field wide">
-            <span>Blocks, one a row: from, to, MW (above 0 delivers, below 0 draws)</span>
+            <span>Blocks, one a row: from, to, MW electric (above 0 delivers, below 0 draws)</span>
             <textarea
               name="schedule"
               rows={6}
@@ -222,7 +223,7 @@ function Preview({
       </ul>
       {blocks.length > 0 && (
         <Scrolled label="Blocks as they are read">
-          <table class="plain tight">
+          <table class="plain">
             <caption>
               As it is read: {blocks.length} {blocks.length === 1 ? 'block' : 'blocks'}; times of{' '}
               {zoneWords(zone)}
@@ -234,7 +235,9 @@ function Preview({
                 <th scope="col">from</th>
                 <th scope="col">to</th>
                 <th scope="col">mode</th>
-                <th scope="col">MW</th>
+                <th scope="col">
+                  MW<sub>el</sub>
+                </th>
                 <th scope="col">
                   MWh<sub>el</sub>
                 </th>
@@ -246,8 +249,12 @@ function Preview({
                 return (
                   <tr key={block.line}>
                     <td>{block.line}</td>
-                    <td>{inZone(zone, block.from)}</td>
-                    <td>{inZone(zone, block.to)}</td>
+                    <td>
+                      <DayAndTime text={inZone(zone, block.from)} />
+                    </td>
+                    <td>
+                      <DayAndTime text={inZone(zone, block.to)} />
+                    </td>
                     <td>{MODE_WORDS[block.mode]}</td>
                     <td>{power(block.power_MW_el)}</td>
                     <td>{hours === null ? '–' : fixed(hours * block.power_MW_el, 2)}</td>

@@ -74,7 +74,7 @@ function Drawing({
         y={power}
         across={[]}
         up={upPower}
-        upName="MW el, delivered above, drawn below"
+        upName="MW_el, delivered above, drawn below"
       />
       <Axes
         frame={{ ...frame, top: POWER_BOTTOM + 44 }}
@@ -184,6 +184,8 @@ export function unsureFrom(block: CheckedBlock): number | null {
   if (lacks < 0.002) return null;
   const from = Date.parse(block.from);
   const to = Date.parse(block.to);
+  // A block of which nothing is sure has no sure beginning, not even that of its ramp.
+  if (certain_MWh_el < 0.002 * planned_MWh_el) return from;
   return to - Math.min(1, lacks) * (to - from);
 }
 

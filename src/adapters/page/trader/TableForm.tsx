@@ -40,7 +40,7 @@ export function OfferForm({
         onAsk();
       }}
     >
-      <Field id="offer-powers" label="Powers, MW" wide>
+      <Field id="offer-powers" label="Powers, MW electric" wide>
         <input
           id="offer-powers"
           name="powers"
@@ -96,7 +96,7 @@ export function OfferForm({
       <details class="more">
         <summary>Prices, to find the certainty worth bidding</summary>
         <div>
-          <Field id="offer-shortfall" label="Cost of each MWh el short, beyond its price">
+          <Field id="offer-shortfall" label="Cost of each MWh electric short, beyond its price">
             <input
               id="offer-shortfall"
               name="shortfall"
@@ -105,7 +105,10 @@ export function OfferForm({
               onInput={(event) => change({ shortfall: event.currentTarget.value })}
             />
           </Field>
-          <Field id="offer-surplus" label="Price of each MWh el not sold, less its worth kept">
+          <Field
+            id="offer-surplus"
+            label="Price of each MWh electric not sold, less its worth kept"
+          >
             <input
               id="offer-surplus"
               name="surplus"

@@ -81,7 +81,7 @@ function Drawing({
         {...{ frame, x, y }}
         across={across.map((value) => [value, `${value}`])}
         up={up.map((value) => [value, `${value}`])}
-        upName="MW el"
+        upName="MW_el"
         acrossName="hours"
       />
       {energies.map((energy) => (
