@@ -48,6 +48,8 @@ async function run(options: RunOptions): Promise<void> {
     );
   }
   for (const note of siteNotes(site)) log.warn(note);
+  // What it writes is for its own user, and for its group where that is meant.
+  process.umask(process.umask() | 0o007);
   // Servers and clients take half a second to load, which a refusal above need not wait for.
   const { createDaemon } = await import('../daemon.js');
   let lose: (thrown: unknown) => void = () => undefined;

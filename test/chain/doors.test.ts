@@ -1,4 +1,4 @@
-import { readdirSync, readFileSync, writeFileSync } from 'node:fs';
+import { readdirSync, readFileSync, statSync, writeFileSync } from 'node:fs';
 import { request } from 'node:https';
 import { join } from 'node:path';
 import { fileURLToPath } from 'node:url';
@@ -197,6 +197,8 @@ describe.skipIf(!requireProgram('openssl'))('all doors of a daemon at once', () 
     expect(await daemon.end('SIGTERM')).toBe(0);
     const files = readdirSync(folder).map((name) => readFileSync(join(folder, name), 'latin1'));
     expect(files.length).toBeGreaterThan(1);
+    const forAll = readdirSync(folder).filter((name) => statSync(join(folder, name)).mode & 7);
+    expect([statSync(folder).mode & 7, forAll]).toEqual([0, []]);
     const everything = [daemon.stdout, daemon.stderr, ...said, ...files].join('\n');
     const key = readFileSync(server.key, 'utf8').split('\n')[1]!;
     const planted = { ...PLANTED, ...tokens, key };

@@ -147,6 +147,7 @@ export async function createHttpApp(
 ): Promise<{ app: HttpApp; stream: LiveStream }> {
   const prefix = normalPrefix(pathPrefix);
   const tuning = { ...DEFAULT_TUNING, ...options.tuning };
+  const { servers } = options;
   const json = new JsonWriter();
   const stream = new LiveStream(service, json, tuning);
   const entrance: Entrance = {
@@ -163,8 +164,8 @@ export async function createHttpApp(
     tuning,
     entrance,
     faultCounts: new FaultCounts(),
+    connectionsRefused: () => servers?.refused ?? 0,
   };
-  const { servers } = options;
 
   const onError = errorHandler(context.faultCounts);
   const app: HttpApp = fastify({

@@ -1,11 +1,12 @@
 import type { FastifyReply, FastifyRequest } from 'fastify';
 import type { Access, Holder } from '../../access/access.js';
 import type { LoginFailures } from '../../access/failures.js';
+import { networkOf } from '../../access/places.js';
 import { covers, type Rank } from '../../access/role.js';
 import { TOKEN_PATTERN } from '../../access/token.js';
 import { recordedWho } from '../../access/who.js';
 import { HttpFault } from './faults.js';
-import { askerOf, countRefused } from './rates.js';
+import { countRefused } from './rates.js';
 import type { HttpApp } from './routes.js';
 
 /** What a route asks of whoever calls it; `public`: nothing. */
@@ -124,7 +125,7 @@ export function refuseToken(
     const words = 'log in first: this needs a token, and none came along';
     return new HttpFault(401, 'not_logged_in', words, { field: 'authorization', expected });
   }
-  const wait_s = failures.add(askerOf(request.ip));
+  const wait_s = failures.add(networkOf(request.ip));
   if (wait_s > 0) {
     reply.header('retry-after', String(wait_s));
     const words = `too many wrong tokens from this address; try again in ${wait_s} s`;

@@ -2,6 +2,7 @@ import { createServer, type RequestListener, type Server } from 'node:http';
 import { createServer as createSecureServer, type Server as SecureServer } from 'node:https';
 import type { Socket } from 'node:net';
 import { CertificateWatch, LEAST_TLS } from '../../access/certificateWatch.js';
+import { Places } from '../../access/places.js';
 import type { ServerTls } from '../../config/site.js';
 import type { HttpTuning } from './tuning.js';
 
@@ -12,6 +13,7 @@ const MOST_HEADER_BYTES = 16 * 1024;
 export class Servers {
   private readonly secure: SecureServer[] = [];
   private readonly watch: CertificateWatch | null;
+  private readonly places: Places;
 
   constructor(
     private readonly tuning: HttpTuning,
@@ -21,6 +23,7 @@ export class Servers {
       error(text: string): void;
     },
   ) {
+    this.places = new Places(tuning.connections_each_most);
     this.watch =
       tls &&
       new CertificateWatch({
@@ -55,9 +58,18 @@ export class Servers {
       server = secure;
     }
     server.maxConnections = connections_most;
+    server.on('connection', (socket: Socket) => this.places.take(socket));
+    server.on('drop', () => {
+      this.places.refused += 1;
+    });
     server.setTimeout(idle_ms);
     return server;
   };
+
+  /** Connections that were ended at once, as there were too many. */
+  get refused(): number {
+    return this.places.refused;
+  }
 
   start(): void {
     this.watch?.start();

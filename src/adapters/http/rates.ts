@@ -1,15 +1,13 @@
-import rateLimit, { normalizeIP } from '@fastify/rate-limit';
+import rateLimit from '@fastify/rate-limit';
 import type { FastifyReply, FastifyRequest } from 'fastify';
+import { networkOf } from '../../access/places.js';
 import { HttpFault } from './faults.js';
 import type { HttpApp } from './routes.js';
-
-/** An address of somebody, or of a whole network of IPv6, where each has 2^64 to choose from. */
-export const askerOf = (ip: string): string => normalizeIP(ip, 64);
 
 /** Bounds the questions a minute of each token, and of each address that shows none. */
 export async function addRates(app: HttpApp, questions_per_min: number): Promise<void> {
   await app.register(rateLimit, {
-    keyGenerator: ({ holder, ip }) => (holder === null ? askerOf(ip) : `token ${holder.name}`),
+    keyGenerator: ({ holder, ip }) => (holder === null ? networkOf(ip) : `token ${holder.name}`),
     max: questions_per_min,
     timeWindow: 60_000,
     errorResponseBuilder: (_request, { max, ttl }) => tooMany(max, ttl),

@@ -29,6 +29,8 @@ export interface RouteContext {
   readonly tuning: HttpTuning;
   readonly entrance: Entrance;
   readonly faultCounts: FaultCounts;
+  /** Connections that were ended at once, as there were too many. */
+  connectionsRefused(): number;
 }
 
 /** One group of routes, declared within the path prefix. */

@@ -29,6 +29,7 @@ interface KeptEvent {
 export class LiveStream {
   private readonly run = randomBytes(4).toString('hex');
   private readonly clients = new Set<StreamClient>();
+  private readonly names = new Map<string, number>();
   private readonly kept: KeptEvent[] = [];
   private readonly changed = new Set<string>();
   private sequence = 0;
@@ -56,6 +57,11 @@ export class LiveStream {
     return this.clients.size;
   }
 
+  /** Streams open with one token. */
+  openOf(name: string): number {
+    return this.names.get(name) ?? 0;
+  }
+
   start(): void {
     this.unsubscribe ??= this.service.subscribe((message) => this.take(message));
     this.beatTimer ??= setInterval(() => this.beat(), this.tuning.heartbeat_ms);
@@ -73,12 +79,18 @@ export class LiveStream {
   }
 
   /** Takes a client in; the sink's closing takes it out again. */
-  attach(sink: StreamSink, lastId: string | null, profileOf: string | null): void {
+  attach(
+    sink: StreamSink,
+    lastId: string | null,
+    profileOf: string | null,
+    name: string | null = null,
+  ): void {
     const client = new StreamClient(sink, profileOf, this.tuning.waiting_most, () => {
       this.slowEnded += 1;
     });
-    sink.onClose(() => this.clients.delete(client));
+    sink.onClose(() => this.leave(client, name));
     this.clients.add(client);
+    if (name !== null) this.names.set(name, this.openOf(name) + 1);
 
     const missed = this.missedSince(lastId);
     const resume = lastId === null ? 'new' : missed === null ? 'gap' : 'resumed';
@@ -98,6 +110,14 @@ export class LiveStream {
     }
     for (const unit of this.service.unitIds()) this.sendState(unit, [client]);
     client.push('beat', this.beatText());
+  }
+
+  private leave(client: StreamClient, name: string | null): void {
+    this.clients.delete(client);
+    if (name === null) return;
+    const left = this.openOf(name) - 1;
+    if (left > 0) this.names.set(name, left);
+    else this.names.delete(name);
   }
 
   /** Kept events after `lastId`; null where it cannot be told which were missed. */

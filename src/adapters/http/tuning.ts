@@ -5,6 +5,8 @@ export interface HttpTuning {
   readonly hours_per_min: number;
   /** Live streams open at the same time. */
   readonly streams_most: number;
+  /** Of these with one token. */
+  readonly streams_each_most: number;
   readonly heartbeat_ms: number;
   /** Shortest time between two states of one unit on the stream [ms]. */
   readonly state_every_ms: number;
@@ -16,6 +18,8 @@ export interface HttpTuning {
   readonly waiting_most: number;
   /** Connections open at the same time; more are closed at once. */
   readonly connections_most: number;
+  /** Of these from one address: nobody takes all places alone. */
+  readonly connections_each_most: number;
   /** Wrong tokens a minute from one address that are answered one by one. */
   readonly wrong_tokens_per_min: number;
   /** Headers, and the whole of a question, have to be there by then [ms]. */
@@ -32,12 +36,14 @@ export const DEFAULT_TUNING: HttpTuning = {
   questions_per_min: 1200,
   hours_per_min: 120,
   streams_most: 64,
+  streams_each_most: 48,
   heartbeat_ms: 5_000,
   state_every_ms: 250,
   events_at_once: 100,
   events_kept: 1_000,
   waiting_most: 200,
   connections_most: 512,
+  connections_each_most: 256,
   wrong_tokens_per_min: 20,
   headers_ms: 10_000,
   request_ms: 30_000,

@@ -3,6 +3,7 @@ import { Duplex } from 'node:stream';
 import { createServer as createSecureServer, type Server as SecureServer } from 'node:tls';
 import { Aedes } from 'aedes';
 import { CertificateWatch, LEAST_TLS } from '../../access/certificateWatch.js';
+import { Places } from '../../access/places.js';
 import type { ServerTls } from '../../config/site.js';
 import { RockhourError, reasonOf } from '../../errors.js';
 import { Door, type DoorOptions } from './door.js';
@@ -23,6 +24,8 @@ export interface BrokerOptions {
 
 /** Connections at the same time; more are closed at once. */
 const MOST_CONNECTIONS = 512;
+/** Of these from one address: nobody takes all places alone. */
+const MOST_EACH = 256;
 /** Whoever has not logged in may not make us keep more than this: a CONNECT with its will [bytes]. */
 const MOST_BEFORE_LOGIN = 65_536;
 /** A client says who it is by then, and has finished the handshake of TLS [ms]. */
@@ -127,8 +130,15 @@ export class EmbeddedBroker {
   private makeServer(take: (socket: Socket) => void): Server | SecureServer {
     const { tls = null } = this.options;
     const server = tls === null ? createServer(take) : this.makeSecure(tls, take);
+    const places = new Places(MOST_EACH);
     server.maxConnections = MOST_CONNECTIONS;
-    server.on('connection', (socket: Socket) => {
+    // Ahead of whoever takes it.
+    server.prependListener('connection', (socket: Socket) => {
+      const { remoteAddress } = socket;
+      if (!places.take(socket)) {
+        this.options.refused?.('connections', `${remoteAddress}: it has ${MOST_EACH} already`);
+        return;
+      }
       this.sockets.add(socket);
       socket.once('close', () => this.sockets.delete(socket));
     });
@@ -165,6 +175,7 @@ export class EmbeddedBroker {
 
   /** Hands a connection to the broker, cut off at the first packet that is too great. */
   private take(aedes: Aedes, socket: Socket): void {
+    if (socket.destroyed) return;
     const client = aedes.handle(socket);
     const sizes = new PacketSizes();
     const { packet_most_bytes = MOST_OF_MQTT, refused } = this.options;

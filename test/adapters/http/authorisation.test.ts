@@ -224,6 +224,31 @@ describe('the log-in of the page', () => {
   });
 });
 
+describe('live streams of one token', () => {
+  it('leave places for others, and are given back', async () => {
+    const { app, stream } = await testApp({ access, tuning: { streams_each_most: 1 } });
+    const url = await app.listen({ host: '127.0.0.1', port: 0 });
+    const open = (role: 'view' | 'acknowledge') => {
+      const headers = { ...bearer(tokens[role]), accept: 'text/event-stream' };
+      return fetch(`${url}/api/stream`, { headers });
+    };
+    const first = await open('view');
+    const second = await open('view');
+    expect([first.status, second.status]).toEqual([200, 503]);
+    expect((await second.json()).error).toMatchObject({
+      ...{ code: 'too_many_streams', expected: 'at most 1 streams with this token' },
+    });
+    const other = await open('acknowledge');
+    expect(other.status).toBe(200);
+    await first.body!.cancel();
+    await expect.poll(() => stream.openOf('a_view')).toBe(0);
+    const again = await open('view');
+    expect(again.status).toBe(200);
+    await Promise.all([other, again].map(({ body }) => body!.cancel()));
+    await app.close();
+  });
+});
+
 describe('a token that is taken back', () => {
   it('is refused from then on, and its stream ends; others go on', async () => {
     const url = await built.app.listen({ host: '127.0.0.1', port: 0 });

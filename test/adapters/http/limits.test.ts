@@ -69,6 +69,19 @@ describe('the server ends', () => {
     await expect.poll(() => exchange(narrow.port, live)).toMatch(/^HTTP\/1\.1 200 /);
   });
 
+  it('connections of an address that has its share already, and counts them', async () => {
+    const { url, port } = await listen({ connections_each_most: 2 });
+    const open = [1, 2].map(() => connect(port, '127.0.0.1'));
+    await Promise.all(open.map((one) => new Promise((resolve) => one.once('connect', resolve))));
+    const live = 'GET /api/live HTTP/1.1\r\nHost: 127.0.0.1\r\nConnection: close\r\n\r\n';
+    expect(await exchange(port, live)).toBe('');
+    for (const one of open) one.destroy();
+    // Places are given back.
+    await expect.poll(() => exchange(port, live)).toMatch(/^HTTP\/1\.1 200 /);
+    const { counters } = await (await fetch(`${url}api/counters`)).json();
+    expect(counters.http_connections_refused).toBeGreaterThan(0);
+  });
+
   it('what is too long in its head, or no HTTP, in the form of all faults', async () => {
     const { port } = await listen();
     const ask = (path: string, header = '') =>

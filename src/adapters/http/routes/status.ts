@@ -6,8 +6,13 @@ import { countersSchema, healthSchema } from '../schema/answers.js';
 import { readySchema } from '../schema/backup.js';
 
 /** What this adapter counts itself, beside the counters of the daemon. */
-function ownCounters({ json, stream }: RouteContext): Record<string, number> {
-  return { http_non_finite_numbers: json.nonFinite, http_slow_streams_ended: stream.slowEnded };
+function ownCounters(context: RouteContext): Record<string, number> {
+  const { json, stream } = context;
+  return {
+    http_non_finite_numbers: json.nonFinite,
+    http_slow_streams_ended: stream.slowEnded,
+    http_connections_refused: context.connectionsRefused(),
+  };
 }
 
 /** GET /api/ready, /api/health, /api/counters, /metrics, /api/openapi.json */

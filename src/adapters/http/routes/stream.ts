@@ -78,13 +78,18 @@ export const streamRoutes: Routes = (app, { service, stream, tuning, entrance })
       if (profile !== undefined && service.now(profile) === undefined) {
         throw unknownUnit(profile, service.unitIds(), 400);
       }
-      if (stream.open >= tuning.streams_most) {
+      const { holder } = request;
+      const isFull = stream.open >= tuning.streams_most;
+      if (isFull || (holder !== null && stream.openOf(holder.name) >= tuning.streams_each_most)) {
+        const [open, most, by] = isFull
+          ? [stream.open, tuning.streams_most, '']
+          : [stream.openOf(holder?.name ?? ''), tuning.streams_each_most, ' with this token'];
         reply.header('retry-after', '5');
         throw new HttpFault(
           503,
           'too_many_streams',
-          `${stream.open} live streams are open, the most that are served at once`,
-          { expected: `at most ${tuning.streams_most} streams` },
+          `${open} live streams are open${by}, the most that are served at once`,
+          { expected: `at most ${most} streams${by}` },
         );
       }
       const lastId = request.headers['last-event-id'] ?? last_event_id ?? null;
@@ -92,13 +97,17 @@ export const streamRoutes: Routes = (app, { service, stream, tuning, entrance })
       reply.sse.sendHeaders(200);
       const sink = sinkOf(reply);
       const { access } = entrance;
-      const { holder } = request;
       // A token that is taken back ends what was begun with it.
       const end = access.onChange(() => {
         if (holder === null ? !access.isOpen : !access.stillHolds(holder)) sink.end();
       });
       sink.onClose(end);
-      stream.attach(sink, typeof lastId === 'string' ? lastId : null, profile ?? null);
+      stream.attach(
+        sink,
+        typeof lastId === 'string' ? lastId : null,
+        profile ?? null,
+        holder?.name,
+      );
     },
   );
 };
