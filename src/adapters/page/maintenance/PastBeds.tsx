@@ -7,7 +7,6 @@ import {
   fixed,
   MODE_WORDS,
   percent,
-  power,
   QUALITY_WORDS,
   withSigma,
 } from '../lib/format.js';
@@ -102,7 +101,7 @@ function Heading({ moment }: { moment: ShownMoment | null }) {
           <>
             {`; ${power_MW_el < 0 ? 'delivered' : 'drawn'} `}
             <span class="figure">
-              {power(Math.abs(power_MW_el))}
+              {fixed(Math.abs(power_MW_el), 2)}
               <Unit name="MW_el" />
             </span>
           </>

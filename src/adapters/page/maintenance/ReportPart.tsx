@@ -1,4 +1,5 @@
 import { useRef, useState } from 'preact/hooks';
+import { dateClock } from '../lib/format.js';
 import { api, model } from '../lib/page.js';
 import { localField } from './moments.js';
 
@@ -28,8 +29,8 @@ export function ReportPart({ unit }: { unit: string }) {
     <>
       <p class="rock-key">
         What happened to the beds in a span of time: findings with their evidence first, then runs,
-        indicators, thermocouples and alarms. One file that asks for nothing else. A month takes a
-        few seconds to put together.
+        indicators, thermocouples and alarms. One file, whole in itself. A month takes a few seconds
+        to put together.
       </p>
       <form class="rock-asks" onSubmit={(event) => event.preventDefault()}>
         <Field
@@ -45,6 +46,11 @@ export function ReportPart({ unit }: { unit: string }) {
           onInput={(to) => setSpan({ ...span, to })}
         />
       </form>
+      {fault === null && (
+        <p class="when" data-field="report-span">
+          {`From ${dateClock(span.from)} to ${dateClock(span.to)}`}
+        </p>
+      )}
       <p class="fault" role="alert">
         {fault}
       </p>

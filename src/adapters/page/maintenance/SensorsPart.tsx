@@ -50,7 +50,7 @@ export function SensorsPart({
           name="sensor-filter"
           options={[
             { value: 'all', label: `all ${rows.length}` },
-            { value: 'rejected', label: `rejected or missing ${rejected}` },
+            { value: 'rejected', label: `${rejected} rejected or missing` },
             ...stores.map(({ id }) => ({ value: `store ${id}`, label: `store ${id}` })),
           ]}
           chosen={filter}
@@ -74,17 +74,17 @@ export function SensorsPart({
                 Thermocouple
               </Head>
               <th scope="col">Store, string</th>
-              <Head by="place" sort={sort} onSort={setSort}>
+              <Head number by="place" sort={sort} onSort={setSort}>
                 At [m]
               </Head>
-              <Head by="reading" sort={sort} onSort={setSort}>
+              <Head number by="reading" sort={sort} onSort={setSort}>
                 Reads [°C]
               </Head>
-              <Head by="apart" sort={sort} onSort={setSort}>
+              <Head number by="apart" sort={sort} onSort={setSort}>
                 Apart [K]
               </Head>
               {answer !== null && (
-                <Head by="worth" sort={sort} onSort={setSort}>
+                <Head number by="worth" sort={sort} onSort={setSort}>
                   If lost [%]
                 </Head>
               )}
@@ -109,9 +109,11 @@ function Head({
   by,
   sort,
   onSort,
+  number,
   children,
 }: {
   by: SortKey;
+  number?: boolean;
   sort: Sort;
   onSort(sort: Sort): void;
   children: ComponentChildren;
@@ -119,7 +121,7 @@ function Head({
   const own = sort.by === by;
   const way = sort.down ? 'descending' : 'ascending';
   return (
-    <th scope="col" aria-sort={own ? way : 'none'}>
+    <th scope="col" class={number ? 'number' : undefined} aria-sort={own ? way : 'none'}>
       <button
         type="button"
         onClick={() => onSort({ by, down: own ? !sort.down : by === 'apart' || by === 'worth' })}

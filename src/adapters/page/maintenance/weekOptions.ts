@@ -1,4 +1,5 @@
 import type uPlot from 'uplot';
+import { fixed } from '../lib/format.js';
 import { timeRange } from '../parts/chartOptions.js';
 import { inkOf } from '../parts/dark.js';
 
@@ -39,7 +40,7 @@ export function weekOptions(
     scales: { x: { range: timeRange } },
     axes: [
       { ...axis, grid, ticks: grid, values: dayTicks, space: 62, size: 30 },
-      { ...axis, grid, ticks: grid, size: 46, space: 24 },
+      { ...axis, grid, ticks: grid, size: 46, space: 24, values: evenTicks },
     ],
     series: [
       {},
@@ -108,6 +109,13 @@ function labelLines(chart: uPlot, lines: readonly Line[], ink: string): void {
 }
 
 const two = (value: number) => String(value).padStart(2, '0');
+
+/** Figures of an axis with equally many decimals, as many as the finest of them needs. */
+export function evenTicks(_chart: unknown, values: readonly number[]): string[] {
+  const texts = values.map((value) => String(Number(value.toPrecision(10))));
+  const digits = Math.max(0, ...texts.map((text) => text.split('.')[1]?.length ?? 0));
+  return values.map((value) => fixed(value, digits));
+}
 
 /** Days as dates, hours within them on the 24-hour clock. */
 function dayTicks(_chart: uPlot, seconds: number[]): string[] {

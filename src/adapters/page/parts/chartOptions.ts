@@ -2,7 +2,7 @@ import type uPlot from 'uplot';
 
 export type ChartKind = 'charge' | 'hours';
 
-const HEIGHT = 104;
+const HEIGHT = 132;
 const LEAST_S = 3_600;
 
 /**
