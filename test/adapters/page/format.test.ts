@@ -57,6 +57,13 @@ describe('figures in words', () => {
     expect(withSigma(null, 0.1, 2)).toBe(DASH);
   });
 
+  it('writes a message with the signs of the page, and leaves its dates alone', () => {
+    expect(parted('Reads -186.4 degC since 2026-01-31. Look at it.')).toEqual([
+      'Reads −186.4 °C since 2026-01-31.',
+      'Look at it.',
+    ]);
+  });
+
   it('says a power no longer than needed', () => {
     expect([power(2), power(1.85), power(0.1 + 0.2)]).toEqual(['2', '1.85', '0.3']);
   });

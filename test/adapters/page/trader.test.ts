@@ -249,7 +249,7 @@ describe.skipIf(!chromium)('the sheet of who sells', { timeout: 30_000 }, () => 
     await page.click('[data-action="capability"]');
     await page.waitForSelector('.capability svg');
     expect(await text(page, 'capability-now')).toBe(
-      'Now, at 90 %: gives up to 3.00 MW, takes up to 3.00 MW.',
+      'Now, at 90 %: gives up to 3.00 MW electric, takes up to 3.00 MW electric.',
     );
   });
 

@@ -127,8 +127,9 @@ export const QUALITY_WORDS = {
   stale: 'stale: no new readings',
 } as const;
 
-/** A message's first sentence, and what follows it. */
-export function parted(message: string): [string, string] {
+/** A message's first sentence, and what follows it; its signs are those of the page, not of a log. */
+export function parted(text: string): [string, string] {
+  const message = text.replace(/(?<=^|[\s(])-(?=\d)/g, MINUS).replaceAll(' degC', ' °C');
   const end = /[.!?] (?=[A-Z])/.exec(message);
   if (end === null) return [message, ''];
   return [message.slice(0, end.index + 1), message.slice(end.index + 2)];

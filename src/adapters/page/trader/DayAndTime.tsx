@@ -1,12 +1,9 @@
 /** Broken between day and time where there is no room, never within one. */
 export function DayAndTime({ text }: { text: string }) {
+  const [day, ...time] = text.split(' ');
   return (
     <>
-      {text.split(' ').map((word, i) => (
-        <span key={word} class="whole">
-          {i === 0 ? word : ` ${word}`}
-        </span>
-      ))}
+      <span class="whole">{day}</span> <span class="whole">{time.join(' ')}</span>
     </>
   );
 }

@@ -58,14 +58,14 @@ function Drawing({
   const greatest = Math.max(...shown.map(({ power_MW_el }) => power_MW_el));
   const across = roundMarks(longest * 1.04, width < 500 ? 5 : 8);
   const up = roundMarks(greatest * 1.1, 4);
-  const frame: Frame = { width, height: HEIGHT, left: 36, right: 12, top: 26, bottom: 40 };
+  const frame: Frame = { width, height: HEIGHT, left: 36, right: 20, top: 26, bottom: 40 };
   const x = scaleOf([0, across.at(-1)!], [frame.left, width - frame.right]);
   const y = scaleOf([0, up.at(-1)!], [HEIGHT - frame.bottom, frame.top]);
   const line = (of: (point: TradePoint) => number) =>
     shown.map((point) => [x(of(point)), y(point.power_MW_el)] as const);
   const band = [...line(({ hours }) => hours.p90), ...line(({ hours }) => hours.p10).reverse()];
   const most_MWh = across.at(-1)! * up.at(-1)!;
-  const energies = roundMarks(most_MWh * 0.6, width < 500 ? 3 : 5).slice(1);
+  const energies = roundMarks(most_MWh * 0.6, width < 500 ? 2 : 5).slice(1);
   const one = shown.find(({ power_MW_el }) => power_MW_el === chosen_MW) ?? null;
   const words = shown
     .map(({ power_MW_el, firm_h }) => `${power(power_MW_el)} MW for ${hoursText(firm_h)}`)
