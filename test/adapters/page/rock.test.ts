@@ -73,7 +73,7 @@ describe('standing of an indicator', () => {
     expect(valueWords(indicator({ sigma: 0 }))).toBe('0.90');
     expect(valueWords(indicator({ value: null }))).toBe('–');
     expect(valueWords(indicator({ unit: 'K', healthy: 0, limit: 8, value: -1.26 }))).toBe(
-      '−1.3 ± <0.1 K',
+      '−1.3 ± 0.1 K',
     );
   });
 
