@@ -1,19 +1,23 @@
+import type { Quality } from './payload.js';
+
 interface SeenReading {
   readonly unit: string;
   readonly channel: string;
   readonly time_ms: number;
   readonly value: number;
-  readonly quality: string;
+  readonly quality: Quality;
 }
 
 /** Kept of each channel at least [readings]. */
 const DEPTH = 64;
+/** Columns of a reading in a ring: source time, value, which reading of all channels it was, quality. */
+const COLUMNS = 4;
+const NUMBER = 2;
+
+/** One array: there are as many rings as channels, ten thousands at a large site. */
 interface Ring {
-  times: Float64Array;
-  values: Float64Array;
-  /** Which reading of all channels it was. */
-  numbers: Float64Array;
-  qualities: string[];
+  readings: Float64Array;
+  /** Row of the oldest. */
   next: number;
 }
 
@@ -23,6 +27,7 @@ interface Ring {
  */
 export class RecentReadings {
   private readonly rings = new Map<string, Ring>();
+  private readonly qualities: Quality[] = [];
   private count = 0;
 
   /**
@@ -39,43 +44,41 @@ export class RecentReadings {
       ring = emptyRing(DEPTH);
       this.rings.set(key, ring);
     }
-    const { times, qualities, values } = ring;
-    for (let i = 0; i < times.length; i++) {
-      if (times[i] !== reading.time_ms || qualities[i] !== reading.quality) continue;
-      if (Object.is(values[i], reading.value)) return true;
+    const quality = this.codeOf(reading.quality);
+    const { readings } = ring;
+    for (let at = 0; at < readings.length; at += COLUMNS) {
+      if (readings[at] !== reading.time_ms || readings[at + 3] !== quality) continue;
+      if (Object.is(readings[at + 1], reading.value)) return true;
     }
     this.count++;
     // One channel alone that brings many at once has a longer memory from then on.
-    if (this.count - ring.numbers[ring.next]! < this.window) grow(ring);
-    ring.times[ring.next] = reading.time_ms;
-    ring.values[ring.next] = reading.value;
-    ring.numbers[ring.next] = this.count;
-    ring.qualities[ring.next] = reading.quality;
-    ring.next = (ring.next + 1) % ring.times.length;
+    if (this.count - readings[ring.next * COLUMNS + NUMBER]! < this.window) grow(ring);
+    ring.readings.set([reading.time_ms, reading.value, this.count, quality], ring.next * COLUMNS);
+    ring.next = (ring.next + 1) % (ring.readings.length / COLUMNS);
     return false;
+  }
+
+  /** Number of a quality: there are a few. */
+  private codeOf(quality: Quality): number {
+    const code = this.qualities.indexOf(quality);
+    return code >= 0 ? code : this.qualities.push(quality) - 1;
   }
 }
 
 function emptyRing(depth: number): Ring {
-  return {
-    times: new Float64Array(depth).fill(Number.NaN),
-    values: new Float64Array(depth),
-    numbers: new Float64Array(depth).fill(Number.NEGATIVE_INFINITY),
-    qualities: new Array<string>(depth).fill(''),
-    next: 0,
-  };
+  const readings = new Float64Array(depth * COLUMNS).fill(Number.NaN);
+  for (let row = 0; row < depth; row++) {
+    readings[row * COLUMNS + NUMBER] = Number.NEGATIVE_INFINITY;
+  }
+  return { readings, next: 0 };
 }
 
 /** Twice the room, the oldest first. */
 function grow(ring: Ring): void {
-  const depth = ring.times.length;
-  const before = { ...ring };
-  Object.assign(ring, emptyRing(2 * depth), { next: depth });
-  for (let i = 0; i < depth; i++) {
-    const from = (before.next + i) % depth;
-    ring.times[i] = before.times[from]!;
-    ring.values[i] = before.values[from]!;
-    ring.numbers[i] = before.numbers[from]!;
-    ring.qualities[i] = before.qualities[from]!;
-  }
+  const { readings, next } = ring;
+  const depth = readings.length / COLUMNS;
+  const larger = emptyRing(2 * depth);
+  larger.readings.set(readings.subarray(next * COLUMNS));
+  larger.readings.set(readings.subarray(0, next * COLUMNS), (depth - next) * COLUMNS);
+  Object.assign(ring, larger, { next: depth });
 }
