@@ -174,8 +174,12 @@ describe.skipIf(!chromium)('the rock sheet, in a real browser', { timeout: 60_00
     const { page } = await open('playback');
     const port = Number(new URL(served.url).port);
     await slider(page).focus();
+    const stands = (moment: string) =>
+      page.waitForSelector(`.rock-past h2:has-text("2026-01-30 ${moment}")`);
     await page.keyboard.press('Home');
+    await stands('06:00:00');
     await page.keyboard.press('ArrowRight');
+    await stands('06:10:00');
     await page.waitForURL(/#rock\/playback\/20/);
     const shown = await page.locator('.rock-past h2').textContent();
     await page.locator('.rock-player').evaluate((one) => one.setAttribute('data-same', ''));
