@@ -2,9 +2,6 @@ import { statSync } from 'node:fs';
 import { readFile } from 'node:fs/promises';
 import { reasonOf } from '../errors.js';
 
-/** Nothing older is spoken by a server of rockhour's own. */
-export const LEAST_TLS = 'TLSv1.2';
-
 export interface CertificateWatchOptions {
   /** Key of the configuration that names the files. */
   readonly path: string;

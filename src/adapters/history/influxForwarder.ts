@@ -1,6 +1,7 @@
 import { request as ask, type IncomingMessage } from 'node:http';
-import { request as askSecurely, type RequestOptions } from 'node:https';
+import { request as askSecurely } from 'node:https';
 import { InfluxDB, type IPoint, type IPoolOptions } from 'influx';
+import { clientTlsOptions } from '../../access/tls.js';
 import type { InfluxConfig } from '../../config/site.js';
 import { reasonOf, withoutCredentials } from '../../errors.js';
 import { pointsOf, withdrawalOf } from './influxPoints.js';
@@ -215,7 +216,7 @@ function ping(config: InfluxConfig): Promise<void> {
     };
     const asked =
       url.protocol === 'https:'
-        ? askSecurely(url, { ...options, ...tlsOptions(config) }, answered)
+        ? askSecurely(url, { ...options, ...clientTlsOptions(config.tls) }, answered)
         : ask(url, options, answered);
     asked.on('timeout', () => asked.destroy(new Error('no answer to a ping')));
     asked.on('error', reject);
@@ -238,7 +239,7 @@ function makeClient(config: InfluxConfig): InfluxDB {
         host: url.hostname,
         port: Number(url.port || (isSecure ? 443 : 80)),
         protocol: isSecure ? 'https' : 'http',
-        ...(isSecure ? { options: tlsOptions(config) } : {}),
+        ...(isSecure ? { options: clientTlsOptions(config.tls) } : {}),
         ...(url.pathname === '/' ? {} : { path: url.pathname }),
       },
     ],
@@ -246,17 +247,6 @@ function makeClient(config: InfluxConfig): InfluxDB {
     ...(config.password === null ? {} : { password: config.password }),
     pool,
   });
-}
-
-/** A certificate is always checked; nothing older than TLS 1.2 is spoken. */
-function tlsOptions({ tls }: InfluxConfig): RequestOptions {
-  const { ca = null, server_name: servername = null } = tls ?? {};
-  return {
-    rejectUnauthorized: true,
-    minVersion: 'TLSv1.2',
-    ...(ca === null ? {} : { ca }),
-    ...(servername === null ? {} : { servername }),
-  };
 }
 
 /** What InfluxDB said, in one line: its client puts a status line before the JSON of the answer. */

@@ -1,8 +1,9 @@
 import { createServer, type RequestListener, type Server } from 'node:http';
 import { createServer as createSecureServer, type Server as SecureServer } from 'node:https';
 import type { Socket } from 'node:net';
-import { CertificateWatch, LEAST_TLS } from '../../access/certificateWatch.js';
+import { CertificateWatch } from '../../access/certificateWatch.js';
 import { Places } from '../../access/places.js';
+import { LEAST_TLS } from '../../access/tls.js';
 import type { ServerTls } from '../../config/site.js';
 import type { HttpTuning } from './tuning.js';
 

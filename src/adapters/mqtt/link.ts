@@ -1,6 +1,6 @@
 import type { Duplex } from 'node:stream';
-import type { SecureContextOptions } from 'node:tls';
 import { connect, type IClientOptions, type IPublishPacket, MqttClient } from 'mqtt';
+import { clientTlsOptions } from '../../access/tls.js';
 import type { ClientTls } from '../../config/site.js';
 import { reasonOf } from '../../errors.js';
 
@@ -272,22 +272,6 @@ export function openClient(
   options: IClientOptions,
 ): MqttClient {
   if (inside !== null) return new MqttClient(() => inside(), options);
-  return connect(url(), { ...options, ...tlsOptions({ url, tls }) });
-}
-
-/** A certificate is always checked; nothing older than TLS 1.2 is spoken. */
-function tlsOptions({
-  url,
-  tls = null,
-}: Pick<LinkOptions, 'url' | 'tls'>): IClientOptions & SecureContextOptions {
-  if (!/^(mqtts|tls|wss):/.test(url())) return {};
-  const { ca = null, cert = null, key = null, server_name: servername = null } = tls ?? {};
-  return {
-    rejectUnauthorized: true,
-    minVersion: 'TLSv1.2',
-    ...(ca === null ? {} : { ca }),
-    ...(cert === null ? {} : { cert }),
-    ...(key === null ? {} : { key }),
-    ...(servername === null ? {} : { servername }),
-  };
+  const isSecure = /^(mqtts|tls|wss):/.test(url());
+  return connect(url(), { ...options, ...(isSecure ? clientTlsOptions(tls) : {}) });
 }

@@ -1,5 +1,6 @@
 import { request as ask, type IncomingMessage, type RequestOptions } from 'node:http';
 import { request as askSecurely } from 'node:https';
+import { clientTlsOptions } from '../../access/tls.js';
 import type { ClientTls } from '../../config/site.js';
 
 export interface Post {
@@ -33,20 +34,9 @@ export function post({ url, headers, body, tls, signal }: Post): Promise<number>
       answer.on('error', () => undefined).destroy();
     };
     const asked = url.startsWith('https:')
-      ? askSecurely(url, { ...options, ...tlsOptions(tls) }, answered)
+      ? askSecurely(url, { ...options, ...clientTlsOptions(tls) }, answered)
       : ask(url, options, answered);
     asked.on('error', (thrown) => reject(signal.aborted ? signal.reason : thrown));
     asked.end(body);
   });
-}
-
-/** A certificate is always checked; nothing older than TLS 1.2 is spoken. */
-function tlsOptions(tls: ClientTls | null) {
-  const { ca = null, server_name: servername = null } = tls ?? {};
-  return {
-    rejectUnauthorized: true,
-    minVersion: 'TLSv1.2',
-    ...(ca === null ? {} : { ca }),
-    ...(servername === null ? {} : { servername }),
-  } as const;
 }
