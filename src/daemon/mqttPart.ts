@@ -98,9 +98,10 @@ export class MqttPart {
       topics: [...intake.topics, ...this.commands.topics],
       will: Announcer.will(config.out_prefix),
       receive: (delivery) => {
+        if (!this.commands.isFor(delivery)) return intake.receive(delivery);
         const { acknowledge } = delivery;
         const inTurn = acknowledge && (() => intake.acknowledgeInTurn(acknowledge));
-        if (!this.commands.receive({ ...delivery, acknowledge: inTurn })) intake.receive(delivery);
+        this.commands.receive({ ...delivery, acknowledge: inTurn });
       },
       up: () => this.up(),
       down: (reason) => {

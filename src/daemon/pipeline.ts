@@ -13,8 +13,14 @@ import type { Notices } from './notices.js';
 import { restoreRunner } from './restore.js';
 import type { RunnerStep, UnitRunner } from './unitRunner.js';
 
-/** Work in one go, after which messages and questions have their turn [ms]. */
-const SLICE_MS = 25;
+/** Work in one go, after which messages and questions have their turn: at least, one scan, at most [ms]. */
+const SHORTEST_MS = 2;
+const LONGEST_MS = 25;
+/**
+ * Of the time that the others took since: while many messages wait at the socket they come first, since
+ * a reading is safe once it is in the journal and its scan can be made later.
+ */
+const SHARE = 1 / 3;
 /** Entries of one unit taken in before others have their turn, where they close no scan. */
 const TURN_ENTRIES = 64;
 /** After a failure to read the journal [ms]. */
@@ -50,6 +56,7 @@ export class Pipeline {
   private scheduled: NodeJS.Immediate | null = null;
   private retry: NodeJS.Timeout | null = null;
   private running = false;
+  private sliceEnded_ms = 0;
   private liveFrom = Number.POSITIVE_INFINITY;
   private idle: (() => void)[] = [];
   private readonly failing = new Map<string, string>();
@@ -148,20 +155,23 @@ export class Pipeline {
     this.scheduled = null;
     const { feed } = this;
     if (!feed) return;
-    const end = performance.now() + SLICE_MS;
-    const { entering } = this.options;
-    while (this.running && performance.now() < end) {
-      if (entering.isFull && !entering.retry()) {
-        this.rest();
-        return;
-      }
-      const hasRead = feed.fill(this.options.journal.lastSeq);
-      if (!this.round(feed, end) && !hasRead) {
-        this.rest();
-        return;
-      }
+    const now_ms = performance.now();
+    const share_ms = SHARE * (now_ms - this.sliceEnded_ms);
+    const isMore = this.work(feed, now_ms + Math.min(Math.max(share_ms, SHORTEST_MS), LONGEST_MS));
+    this.sliceEnded_ms = performance.now();
+    if (isMore) this.kick();
+    else this.rest();
+  }
+
+  /** Works until then; false where there is nothing left that could be done. */
+  private work(feed: Feed, end_ms: number): boolean {
+    const { entering, journal } = this.options;
+    while (this.running && performance.now() < end_ms) {
+      if (entering.isFull && !entering.retry()) return false;
+      const hasRead = feed.fill(journal.lastSeq);
+      if (!this.round(feed, end_ms) && !hasRead) return false;
     }
-    this.kick();
+    return true;
   }
 
   /** A turn for each unit, as far as time allows; false where none had anything to do. */

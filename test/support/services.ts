@@ -92,7 +92,7 @@ export async function startMosquitto(
   const lines = [
     `listener ${at} 127.0.0.1`,
     'allow_anonymous true',
-    ...(options.limits === 'default' ? [] : ['max_queued_messages 100000']),
+    ...(options.limits === 'default' ? [] : ['max_queued_messages 1000000']),
     'persistence true',
     `persistence_location ${folder}/`,
     'autosave_interval 1',

@@ -6,7 +6,7 @@ const [url, topicsFile, wanted, protocol] = process.argv.slice(2);
 const topics = JSON.parse(readFileSync(topicsFile, 'utf8'));
 let count = 0;
 let first_ms = 0;
-const properties = { sessionExpiryInterval: 86_400, receiveMaximum: 1024 };
+const properties = { sessionExpiryInterval: 86_400, receiveMaximum: 2048 };
 const client = connect(url, {
   clientId: 'bare',
   clean: false,

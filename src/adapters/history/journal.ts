@@ -31,6 +31,7 @@ const MOST_TAKEN_OVER = 1_000_000;
 const TOGETHER = 32;
 const COLUMNS = 'INSERT INTO entries (seq, source, time, arrival, value, quality) VALUES';
 const ONE = '(?, ?, ?, ?, ?, ?)';
+const FIELDS = 6;
 
 export const JOURNAL_SCHEMA = [
   `CREATE TABLE sources (
@@ -283,29 +284,33 @@ export class Journal {
 
   private insertAll(entries: readonly JournalEntry[], shift: number): void {
     const whole = entries.length - (entries.length % TOGETHER);
+    const values: unknown[] = [];
     for (let i = 0; i < whole; i += TOGETHER) {
-      const values: unknown[] = [];
-      for (let j = i; j < i + TOGETHER; j++) this.put(entries[j]!, shift, values);
+      for (let j = 0; j < TOGETHER; j++) this.put(entries[i + j]!, shift, values, j * FIELDS);
       this.insertTogether.run(values);
     }
-    for (const entry of entries.slice(whole)) {
-      const values: unknown[] = [];
-      this.put(entry, shift, values);
+    values.length = FIELDS;
+    for (let i = whole; i < entries.length; i++) {
+      this.put(entries[i]!, shift, values, 0);
       this.insert.run(values);
     }
   }
 
-  private put(entry: JournalEntry, shift: number, values: unknown[]): void {
-    const seq = entry.seq + shift;
+  /** The fields of an entry into a row's place from `at` on. */
+  private put(entry: JournalEntry, shift: number, values: unknown[], at: number): void {
+    values[at] = entry.seq + shift;
+    values[at + 3] = entry.arrival_ms;
     if (entry.kind === 'close') {
-      const source = this.sources.numberOf(entry.unit, UNIT_ITSELF);
-      values.push(seq, source, entry.scan_index, entry.arrival_ms, null, CLOSE_MARK);
+      values[at + 1] = this.sources.numberOf(entry.unit, UNIT_ITSELF);
+      values[at + 2] = entry.scan_index;
+      values[at + 4] = null;
+      values[at + 5] = CLOSE_MARK;
       return;
     }
-    const { unit, channel, time_ms, arrival_ms, value, quality } = entry;
-    const source = this.sources.numberOf(unit, channel);
-    const stored = Number.isNaN(value) ? null : value;
-    values.push(seq, source, time_ms, arrival_ms, stored, JOURNAL_QUALITY[quality]);
+    values[at + 1] = this.sources.numberOf(entry.unit, entry.channel);
+    values[at + 2] = entry.time_ms;
+    values[at + 4] = Number.isNaN(entry.value) ? null : entry.value;
+    values[at + 5] = JOURNAL_QUALITY[entry.quality];
   }
 
   private opened(): Database {

@@ -46,18 +46,26 @@ export function entryOf(
   if (quality === CLOSE_MARK || quality === LEFT_OUT_MARK) {
     return { kind: 'close', seq, unit, scan_index: time, arrival_ms: arrival };
   }
-  return {
-    ...{ kind: 'reading', seq, unit, channel, time_ms: time, arrival_ms: arrival },
-    value: row.value ?? Number.NaN,
-    quality: quality === 0 ? 'good' : quality === 1 ? 'uncertain' : 'bad',
-  };
+  const value = row.value ?? Number.NaN;
+  const stated = quality === 0 ? 'good' : quality === 1 ? 'uncertain' : 'bad';
+  return makeReading(seq, unit, channel, time, arrival, value, stated);
 }
 
 /** A reading as it will be read back: the file knows no negative zero. */
 export function readingEntry(seq: number, reading: JournalReading): ReadingEntry {
   const { unit, channel, time_ms, arrival_ms, value, quality } = reading;
-  return {
-    ...{ kind: 'reading', seq, unit, channel, quality },
-    ...{ time_ms: time_ms + 0, arrival_ms: arrival_ms + 0, value: value + 0 },
-  };
+  return makeReading(seq, unit, channel, time_ms + 0, arrival_ms + 0, value + 0, quality);
+}
+
+/** Tens of thousands are made a second: one literal of one shape, several times as fast as spreads. */
+function makeReading(
+  seq: number,
+  unit: string,
+  channel: string,
+  time_ms: number,
+  arrival_ms: number,
+  value: number,
+  quality: ReadingQuality,
+): ReadingEntry {
+  return { kind: 'reading', seq, unit, channel, time_ms, arrival_ms, value, quality };
 }

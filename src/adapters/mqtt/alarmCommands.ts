@@ -48,6 +48,10 @@ export class AlarmCommands {
     return [...this.unitOf.keys()];
   }
 
+  isFor({ topic }: Pick<Delivery, 'topic'>): boolean {
+    return this.unitOf.has(topic);
+  }
+
   /** false where the message is none of these. */
   receive({ topic, payload, retained, acknowledge }: Delivery): boolean {
     const unit = this.unitOf.get(topic);

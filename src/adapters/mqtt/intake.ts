@@ -192,9 +192,21 @@ export class Intake {
   private flushSoon(): void {
     if (this.failing) return;
     if (this.unflushed >= GROUP_MOST) this.flush();
-    // With all that the socket has brought by now: a sync to the disk costs as much for one as for all.
-    else if (this.unflushed >= GROUP_MESSAGES) this.soon ??= setImmediate(() => this.flush());
+    else if (this.unflushed >= GROUP_MESSAGES)
+      this.soon ??= setImmediate(() => this.flushOnceQuiet());
     else this.timer ??= setTimeout(() => this.flush(), GROUP_MS);
+  }
+
+  /**
+   * With all that the broker has on its way: a sync to the disk costs as much for one as for all. That
+   * is in once a turn of the loop brings no more, or after GROUP_MS by the timer of the first.
+   */
+  private flushOnceQuiet(before = 0): void {
+    if (this.unflushed === before) this.flush();
+    else {
+      const { unflushed } = this;
+      this.soon = setImmediate(() => this.flushOnceQuiet(unflushed));
+    }
   }
 
   /** Commits what waits and acknowledges it. */

@@ -49,7 +49,7 @@ const SESSION_EXPIRY_S = 7 * 86_400;
  * Messages that the broker may have on their way before one is acknowledged. By MQTT 3.1.1 its own
  * limit stands alone (mosquitto: 20), and each sync of the journal is for that many.
  */
-export const RECEIVE_MAXIMUM = 1024;
+export const RECEIVE_MAXIMUM = 2048;
 const RECONNECT_MS = 1000;
 const CONNECT_TIMEOUT_MS = 10_000;
 const KEEPALIVE_S = 15;
@@ -61,10 +61,9 @@ const MOST_TELLING = 1000;
 /** A message handed on but not yet acknowledged: MQTT.js then sends no PUBACK of its own. */
 const LATER = new Error('acknowledged apart from the handler');
 
-/** The parts of MQTT.js 5.16 that are not exposed; held by a contract test. */
-interface PacketWriter {
-  _sendPacket(packet: { cmd: 'puback'; messageId: number; reasonCode: number }): void;
-}
+/** PUBACK without a reason, which means success, in both versions of MQTT: type, length, message id. */
+const PUBACK = 0x40;
+const PUBACK_BYTES = 4;
 
 /**
  * The one wrapper of MQTT.js. It keeps a session at the broker, subscribes on every connect, tells
@@ -80,6 +79,9 @@ export class MqttLink {
   private isToldDown = false;
   /** Messages by `tell` that the broker has not acknowledged. */
   private telling = 0;
+  /** Message ids to be acknowledged by the connection that they came by, in this turn of the loop. */
+  private acknowledged: number[] = [];
+  private acknowledging = 0;
   /** Newest payload that waits per topic while an older one is on its way. */
   private readonly waiting = new Map<string, string | null>();
 
@@ -107,6 +109,7 @@ export class MqttLink {
   }
 
   async stop(): Promise<void> {
+    this.sendAcknowledged();
     const client = this.client;
     this.client = null;
     if (!client) return;
@@ -224,20 +227,41 @@ export class MqttLink {
   private take(packet: IPublishPacket, done: (error?: Error) => void): void {
     const { connection } = this;
     const { messageId, qos } = packet;
-    const client = this.client;
-    const acknowledge = (id: number) => {
-      if (connection !== this.connection || !client?.connected) return;
-      const writer = client as unknown as PacketWriter;
-      writer._sendPacket({ cmd: 'puback', messageId: id, reasonCode: 0 });
-    };
     this.options.receive({
       topic: packet.topic,
       payload: Buffer.isBuffer(packet.payload) ? packet.payload : Buffer.from(packet.payload),
       duplicate: packet.dup,
       retained: packet.retain,
-      acknowledge: qos !== 1 || messageId === undefined ? null : () => acknowledge(messageId),
+      acknowledge:
+        qos !== 1 || messageId === undefined ? null : () => this.acknowledge(messageId, connection),
     });
     done(qos === 1 ? LATER : undefined);
+  }
+
+  private acknowledge(messageId: number, connection: number): void {
+    if (connection !== this.connection) return;
+    if (this.acknowledged.length > 0 && this.acknowledging === connection) {
+      this.acknowledged.push(messageId);
+      return;
+    }
+    this.acknowledged = [messageId];
+    this.acknowledging = connection;
+    process.nextTick(() => this.sendAcknowledged());
+  }
+
+  /** All of one group commit by one write: a packet written by MQTT.js each cost more than the commit. */
+  private sendAcknowledged(): void {
+    const ids = this.acknowledged;
+    this.acknowledged = [];
+    const { client } = this;
+    if (ids.length === 0) return;
+    if (this.acknowledging !== this.connection || !client?.connected) return;
+    const packets = Buffer.allocUnsafe(ids.length * PUBACK_BYTES);
+    ids.forEach((id, n) => {
+      packets.writeUInt16BE((PUBACK << 8) | (PUBACK_BYTES - 2), n * PUBACK_BYTES);
+      packets.writeUInt16BE(id, n * PUBACK_BYTES + 2);
+    });
+    client.stream.write(packets);
   }
 }
 

@@ -19,6 +19,8 @@ interface Ring {
   readings: Float64Array;
   /** Row of the oldest. */
   next: number;
+  /** Newest source time there ever was: what is newer is no copy. */
+  newest_ms: number;
 }
 
 /**
@@ -26,7 +28,8 @@ interface Ring {
  * from news: "at least once" delivery brings copies, which carry nothing and are counted, not kept.
  */
 export class RecentReadings {
-  private readonly rings = new Map<string, Ring>();
+  /** By unit and channel. */
+  private readonly rings = new Map<string, Map<string, Ring>>();
   private readonly qualities: Quality[] = [];
   private count = 0;
 
@@ -38,24 +41,29 @@ export class RecentReadings {
 
   /** True where this very reading is among the last of its channel; else it is remembered. */
   seen(reading: SeenReading): boolean {
-    const key = `${reading.unit}\n${reading.channel}`;
-    let ring = this.rings.get(key);
-    if (!ring) {
-      ring = emptyRing(DEPTH);
-      this.rings.set(key, ring);
-    }
+    const ring = this.rings.get(reading.unit)?.get(reading.channel) ?? this.newRing(reading);
+    const { time_ms, value } = reading;
     const quality = this.codeOf(reading.quality);
-    const { readings } = ring;
-    for (let at = 0; at < readings.length; at += COLUMNS) {
-      if (readings[at] !== reading.time_ms || readings[at + 3] !== quality) continue;
-      if (Object.is(readings[at + 1], reading.value)) return true;
-    }
+    if (time_ms <= ring.newest_ms && holds(ring, time_ms, value, quality)) return true;
+    ring.newest_ms = Math.max(ring.newest_ms, time_ms);
     this.count++;
     // One channel alone that brings many at once has a longer memory from then on.
-    if (this.count - readings[ring.next * COLUMNS + NUMBER]! < this.window) grow(ring);
-    ring.readings.set([reading.time_ms, reading.value, this.count, quality], ring.next * COLUMNS);
+    if (this.count - ring.readings[ring.next * COLUMNS + NUMBER]! < this.window) grow(ring);
+    const row = ring.next * COLUMNS;
+    ring.readings[row] = time_ms;
+    ring.readings[row + 1] = value;
+    ring.readings[row + NUMBER] = this.count;
+    ring.readings[row + 3] = quality;
     ring.next = (ring.next + 1) % (ring.readings.length / COLUMNS);
     return false;
+  }
+
+  private newRing({ unit, channel }: SeenReading): Ring {
+    const ring = emptyRing(DEPTH);
+    const own = this.rings.get(unit) ?? new Map<string, Ring>();
+    own.set(channel, ring);
+    this.rings.set(unit, own);
+    return ring;
   }
 
   /** Number of a quality: there are a few. */
@@ -65,20 +73,28 @@ export class RecentReadings {
   }
 }
 
+function holds({ readings }: Ring, time_ms: number, value: number, quality: number): boolean {
+  for (let at = 0; at < readings.length; at += COLUMNS) {
+    if (readings[at] !== time_ms || readings[at + 3] !== quality) continue;
+    if (Object.is(readings[at + 1], value)) return true;
+  }
+  return false;
+}
+
 function emptyRing(depth: number): Ring {
   const readings = new Float64Array(depth * COLUMNS).fill(Number.NaN);
   for (let row = 0; row < depth; row++) {
     readings[row * COLUMNS + NUMBER] = Number.NEGATIVE_INFINITY;
   }
-  return { readings, next: 0 };
+  return { readings, next: 0, newest_ms: Number.NEGATIVE_INFINITY };
 }
 
 /** Twice the room, the oldest first. */
 function grow(ring: Ring): void {
-  const { readings, next } = ring;
+  const { readings, next, newest_ms } = ring;
   const depth = readings.length / COLUMNS;
   const larger = emptyRing(2 * depth);
   larger.readings.set(readings.subarray(next * COLUMNS));
   larger.readings.set(readings.subarray(0, next * COLUMNS), (depth - next) * COLUMNS);
-  Object.assign(ring, larger, { next: depth });
+  Object.assign(ring, larger, { next: depth, newest_ms });
 }
