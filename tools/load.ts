@@ -1,7 +1,7 @@
 /**
  * What the daemon carries: a real daemon and mosquitto, units like that of config/demo.yaml.
  *
- *   npm run load -- [--only ingest,units,one,week] [--messages 60000] [--rounds 3] [--units 200]
+ *   npm run load -- [--only ingest,units,one,week] [--messages 200000] [--rounds 3] [--units 200]
  *                   [--minutes 20] [--scan 10] [--payload array|value] [--burst] [--days 7]
  *                   [--protocol 5|4]
  *
@@ -32,7 +32,7 @@ const PARTS = ['ingest', 'units', 'one', 'week'] as const;
 const { values } = parseArgs({
   options: {
     only: { type: 'string', default: PARTS.join(',') },
-    messages: { type: 'string', default: '60000' },
+    messages: { type: 'string', default: '200000' },
     rounds: { type: 'string', default: '3' },
     units: { type: 'string', default: '200' },
     minutes: { type: 'string', default: '20' },
