@@ -1,5 +1,6 @@
 /**
- * What the daemon carries: a real daemon and mosquitto, units like that of config/demo.yaml.
+ * What the daemon carries: a real daemon and mosquitto, units like that of config/demo.yaml, the
+ * environment of config/rockhour.service.
  *
  *   npm run load -- [--only ingest,units,one,week] [--messages 200000] [--rounds 3] [--units 200]
  *                   [--minutes 20] [--scan 10] [--payload array|value] [--burst] [--days 7]

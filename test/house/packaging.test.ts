@@ -8,6 +8,7 @@ import { metricsText } from '../../src/adapters/http/metrics.js';
 import { ScanTimes } from '../../src/adapters/http/scanTimes.js';
 import { Counters } from '../../src/daemon/counters.js';
 import { EXIT_CODES } from '../../src/errors.js';
+import { shippedEnvironment } from '../../tools/load/shipped.js';
 import { ScriptedPlant } from '../adapters/http/scriptedPlant.js';
 import { requireProgram } from '../support/requirements.js';
 import { root } from './imports.js';
@@ -42,6 +43,14 @@ describe('the systemd unit', () => {
     expect(Number(service.get('TimeoutStopSec'))).toBeGreaterThan(5);
     expect(service.get('RestartPreventExitStatus')).toBe(String(EXIT_CODES.usage.code));
     expect(service.get('WorkingDirectory')).toBe(`/var/lib/${service.get('StateDirectory')}`);
+  });
+
+  it('sets the same for its memory as the image does', () => {
+    const image = Object.fromEntries(
+      [...read('Dockerfile').matchAll(/\b(MALLOC_\w+|NODE_ENV)=(\S+)/g)].map(([, k, v]) => [k, v]),
+    );
+    expect(Object.keys(image)).toHaveLength(4);
+    expect(shippedEnvironment()).toEqual(image);
   });
 
   it.skipIf(!analyze)('has an exposure below 2 of 10 in the eyes of systemd itself', () => {

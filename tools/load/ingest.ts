@@ -7,6 +7,7 @@ import { Journal } from '../../src/adapters/history/journal.js';
 import { type Service, startMosquitto } from '../../test/support/services.js';
 import { ChaosDaemon } from '../chaos/daemon.js';
 import { Metrics } from './metrics.js';
+import { shippedEnvironment } from './shipped.js';
 import { type LoadSite, writeLoadSite } from './site.js';
 
 const BARE = fileURLToPath(new URL('./bare.mjs', import.meta.url));
@@ -44,7 +45,7 @@ export async function ingest(options: IngestOptions): Promise<IngestRound[]> {
   });
   const topics = join(folder, 'topics.json');
   writeFileSync(topics, JSON.stringify(load.site.sources.map(({ topic }) => topic)));
-  const daemon = new ChaosDaemon(load.path);
+  const daemon = new ChaosDaemon(load.path, shippedEnvironment());
   const found: IngestRound[] = [];
   try {
     // Both leave a session behind.

@@ -6,6 +6,7 @@ import { createDemoPlant } from '../../src/plant/demoPlant.js';
 import { startMosquitto } from '../../test/support/services.js';
 import { ChaosDaemon } from '../chaos/daemon.js';
 import { Metrics, quantile } from './metrics.js';
+import { shippedEnvironment } from './shipped.js';
 import { writeLoadSite } from './site.js';
 
 /** Between two looks at the daemon [ms]. */
@@ -48,7 +49,7 @@ export async function manyUnits(options: UnitsOptions): Promise<UnitsFigures> {
     ...{ folder: join(folder, 'site'), broker: broker.url, units },
     ...{ scan_period_s: scan_s, payload: options.payload },
   });
-  const daemon = new ChaosDaemon(path);
+  const daemon = new ChaosDaemon(path, shippedEnvironment());
   const client = await connectAsync(broker.url);
   const period_ms = scan_s * 1000;
   const begin_ms = (Math.floor(Date.now() / period_ms) + 1) * period_ms;

@@ -6,6 +6,7 @@ import { startMosquitto } from '../../test/support/services.js';
 import { ChaosDaemon } from '../chaos/daemon.js';
 import { slope } from '../page/slope.js';
 import { Metrics } from './metrics.js';
+import { shippedEnvironment } from './shipped.js';
 import { writeLoadSite } from './site.js';
 import { say } from './units.js';
 
@@ -41,7 +42,7 @@ export async function week(options: WeekOptions): Promise<WeekFigures> {
     ...{ folder: join(folder, 'site'), broker: broker.url, units: 1 },
     ...{ scan_period_s: SCAN_S, payload: 'array' },
   });
-  const daemon = new ChaosDaemon(path);
+  const daemon = new ChaosDaemon(path, shippedEnvironment());
   const client = await connectAsync(broker.url);
   const start_ms = Date.now() - (days + 1) * 86_400_000;
   const plant = createDemoPlant(site.units[0]!, { start_ms, incidents: false });
