@@ -4,9 +4,11 @@ export const SHAPE_SIZE = 5;
 
 const N = SHAPE_SIZE;
 
-/** Lower factor of the matrix with its diagonal raised by `damping`; null where not positive. */
-export function cholesky(matrix: Float64Array, damping: number): Float64Array | null {
-  const l = new Float64Array(N * N);
+/**
+ * Lower factor of the matrix with its diagonal raised by `damping` into `l`, of which only that half is
+ * read and written. False where the matrix is not positive.
+ */
+export function cholesky(matrix: Float64Array, damping: number, l: Float64Array): boolean {
   for (let a = 0; a < N; a++) {
     for (let b = 0; b <= a; b++) {
       let sum = matrix[N * a + b]!;
@@ -15,10 +17,10 @@ export function cholesky(matrix: Float64Array, damping: number): Float64Array | 
       if (a !== b) l[N * a + b] = sum / l[(N + 1) * b]!;
       else if (sum > 1e-14 * matrix[(N + 1) * a]! && sum < Number.POSITIVE_INFINITY)
         l[(N + 1) * a] = Math.sqrt(sum);
-      else return null;
+      else return false;
     }
   }
-  return l;
+  return true;
 }
 
 /** Solves L L' x = right for the factor of `cholesky`. */

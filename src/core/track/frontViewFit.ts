@@ -170,17 +170,23 @@ function none(reason: FrontViewReason): NoFrontFit {
 }
 
 function columns(readings: readonly FrontReading[]): FrontData {
-  const take = (value: (reading: FrontReading) => number) => Float64Array.from(readings, value);
-  return {
-    x_m: take((r) => {
-      if (!Number.isFinite(r.x_m)) throw new RangeError(`x_m must be finite, got ${r.x_m}`);
-      return r.x_m;
-    }),
-    temperature_K: take((r) => r.temperature_K),
-    white_K: take((r) => requirePositive('sigma_K', r.sigma_K)),
-    lasting_K: take((r) => requireNotNegative('lasting_K', r.lasting_K ?? 0)),
-    place_m: take((r) => requireNotNegative('place_m', r.place_m ?? 0)),
+  const empty = (): Float64Array => new Float64Array(readings.length);
+  const data: FrontData = {
+    x_m: empty(),
+    temperature_K: empty(),
+    white_K: empty(),
+    lasting_K: empty(),
+    place_m: empty(),
   };
+  readings.forEach((r, i) => {
+    if (!Number.isFinite(r.x_m)) throw new RangeError(`x_m must be finite, got ${r.x_m}`);
+    data.x_m[i] = r.x_m;
+    data.temperature_K[i] = r.temperature_K;
+    data.white_K[i] = requirePositive('sigma_K', r.sigma_K);
+    data.lasting_K[i] = requireNotNegative('lasting_K', r.lasting_K ?? 0);
+    data.place_m[i] = requireNotNegative('place_m', r.place_m ?? 0);
+  });
+  return data;
 }
 
 /** Sensors at one place count as their mean where a profile is needed. */

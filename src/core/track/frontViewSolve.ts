@@ -65,20 +65,30 @@ const N = SHAPE_SIZE;
  * @returns null where the steps do not settle
  */
 export function solveFront(data: FrontData, prior: FrontPrior, start: Shape): FrontSolution | null {
-  const weights = new Float64Array(data.x_m.length);
+  const fit: Fit = {
+    data,
+    prior,
+    weights: new Float64Array(data.x_m.length),
+    evaluated: null,
+    jacobian: new Float64Array(N * data.x_m.length),
+    model_K: new Float64Array(data.x_m.length),
+    system: emptySystem(),
+    trial: emptySystem(),
+    factor: new Float64Array(N * N),
+  };
   let at = start;
   // Without uncertain places the weights do not depend on the slope.
   const passes = data.place_m.some((place) => place > 0) ? 3 : 1;
   for (let pass = 0; pass < passes; pass++) {
-    weigh(data, at, weights);
+    weigh(fit, at);
     const isLast = pass === passes - 1;
-    const reached = descend(data, weights, prior, at, isLast ? MOST_LAST_STEPS : MOST_STEPS);
+    const reached = descend(fit, at, isLast ? MOST_LAST_STEPS : MOST_STEPS);
     if (reached === null || (isLast && !reached.settled)) return null;
     at = reached.at;
   }
-  const system = normalEquations(data, weights, prior, at);
-  const factor = cholesky(system.matrix, 0);
-  if (factor === null) return null;
+  const { system, factor } = fit;
+  normalEquations(fit, at, system);
+  if (!cholesky(system.matrix, 0, factor)) return null;
   const covariance = new Float64Array(N * N);
   for (let j = 0; j < N; j++) {
     const unit: Shape = [0, 0, 0, 0, 0];
@@ -91,17 +101,38 @@ export function solveFront(data: FrontData, prior: FrontPrior, start: Shape): Fr
   return {
     parameters: at,
     covariance,
-    white: whitePart(data, weights, at, covariance),
+    white: whitePart(fit, covariance),
     misfit: freedom > 0 ? system.squares / freedom : 1,
-    worst: worstReading(data, weights, at, covariance),
+    worst: worstReading(fit, covariance),
   };
 }
 
-function weigh(data: FrontData, at: Shape, weights: Float64Array): void {
-  const j: Shape = [0, 0, 0, 0, 0];
+/** A fit that is under way: its arrays are made once, as each costs as much as a step. */
+interface Fit {
+  readonly data: FrontData;
+  readonly prior: FrontPrior;
+  readonly weights: Float64Array;
+  /** Shape to which `jacobian` belongs, a row of five derivatives per reading, and its temperatures. */
+  evaluated: Shape | null;
+  readonly jacobian: Float64Array;
+  readonly model_K: Float64Array;
+  /** Of the shape reached, and of the one that is tried; they change places. */
+  system: NormalEquations;
+  trial: NormalEquations;
+  readonly factor: Float64Array;
+}
+
+const emptySystem = (): NormalEquations => ({
+  matrix: new Float64Array(N * N),
+  gradient: [0, 0, 0, 0, 0],
+  squares: 0,
+});
+
+function weigh(fit: Fit, at: Shape): void {
+  const { data, weights, jacobian } = fit;
+  evaluate(fit, at);
   for (let i = 0; i < weights.length; i++) {
-    derivatives(data.x_m[i]!, at, j);
-    const slope = j[0];
+    const slope = jacobian[N * i]!;
     weights[i] =
       1 / (data.white_K[i]! ** 2 + data.lasting_K[i]! ** 2 + (slope * data.place_m[i]!) ** 2);
   }
@@ -109,18 +140,16 @@ function weigh(data: FrontData, at: Shape, weights: Float64Array): void {
 
 /** @returns where the steps led to; null where no step leads down any more */
 function descend(
-  data: FrontData,
-  weights: Float64Array,
-  prior: FrontPrior,
+  fit: Fit,
   start: Shape,
   most: number,
 ): { readonly at: Shape; readonly settled: boolean } | null {
   let at = start;
-  let system = normalEquations(data, weights, prior, at);
+  normalEquations(fit, at, fit.system);
   let damping = 1e-3;
   for (let step = 0; step < most; step++) {
-    const factor = cholesky(system.matrix, damping);
-    if (factor === null) {
+    const { system, trial, factor } = fit;
+    if (!cholesky(system.matrix, damping, factor)) {
       damping *= 10;
       continue;
     }
@@ -129,11 +158,12 @@ function descend(
     // means anything.
     const shorten = Math.min(1, 1 / Math.max(1e-300, Math.abs(move[1]), Math.abs(move[4])));
     const next = at.map((value, k) => value + shorten * move[k]!) as Shape;
-    const trial = normalEquations(data, weights, prior, next);
+    normalEquations(fit, next, trial);
     const gain = system.squares - trial.squares;
     if (gain >= 0) {
       at = next;
-      system = trial;
+      fit.system = trial;
+      fit.trial = system;
       damping = Math.max(1e-9, damping / 10);
       if (gain < ENOUGH && shorten === 1 && damping < 1e-2) return { at, settled: true };
     } else {
@@ -151,27 +181,25 @@ interface NormalEquations {
   readonly matrix: Float64Array;
   /** J'W r + priors, the direction of descent. */
   readonly gradient: Shape;
-  readonly squares: number;
+  squares: number;
 }
 
-function normalEquations(
-  data: FrontData,
-  weights: Float64Array,
-  prior: FrontPrior,
-  at: Shape,
-): NormalEquations {
-  const h = new Float64Array(N * N);
-  const g: Shape = [0, 0, 0, 0, 0];
-  const j: Shape = [0, 0, 0, 0, 0];
+function normalEquations(fit: Fit, at: Shape, out: NormalEquations): void {
+  const { data, prior, weights, jacobian, model_K } = fit;
+  evaluate(fit, at);
+  const { matrix: h, gradient: g } = out;
+  h.fill(0);
+  g.fill(0);
   let squares = 0;
   for (let i = 0; i < weights.length; i++) {
-    const residual = data.temperature_K[i]! - derivatives(data.x_m[i]!, at, j);
+    const residual = data.temperature_K[i]! - model_K[i]!;
     const weight = weights[i]!;
+    const row = N * i;
     squares += weight * residual * residual;
     for (let a = 0; a < N; a++) {
-      const wa = weight * (j[a] as number);
-      g[a] = (g[a] as number) + wa * residual;
-      for (let b = 0; b <= a; b++) h[N * a + b] = (h[N * a + b] as number) + wa * (j[b] as number);
+      const wa = weight * jacobian[row + a]!;
+      g[a]! += wa * residual;
+      for (let b = 0; b <= a; b++) h[N * a + b]! += wa * jacobian[row + b]!;
     }
   }
   const means = [prior.logWidth, prior.charged_K, prior.discharged_K, 0];
@@ -183,46 +211,52 @@ function normalEquations(
     g[k + 1]! += weight * off;
     squares += weight * off * off;
   });
-  return { matrix: h, gradient: g, squares };
+  out.squares = squares;
 }
 
-/** Model temperature at x; fills the derivatives. */
-function derivatives(x: number, [p, logW, A, B, e]: Shape, j: Shape): number {
-  const w = Math.exp(logW);
-  const u = (x - p) / w;
-  const root = Math.sqrt(1 + u * u);
+/** Model temperatures at all readings, and the rows of derivatives. */
+function evaluate(fit: Fit, at: Shape): void {
+  if (fit.evaluated === at) return;
+  fit.evaluated = at;
+  const { jacobian, model_K } = fit;
+  const { x_m } = fit.data;
+  const [p, A, e] = [at[0], at[2], at[4]];
+  const w = Math.exp(at[1]);
   const ch = Math.cosh(e);
   const sh = Math.sinh(e);
-  const z = u * ch + root * sh;
-  const c = root * ch + u * sh;
-  const density = normalDensity(z);
-  const share = normalDistribution(z, density);
-  const steep = (B - A) * density * c;
-  j[0] = -steep / (root * w);
-  j[1] = (-steep * u) / root;
-  j[2] = 1 - share;
-  j[3] = share;
-  j[4] = steep;
-  return A + (B - A) * share;
+  const rise = at[3] - A;
+  for (let i = 0; i < x_m.length; i++) {
+    const u = (x_m[i]! - p) / w;
+    const root = Math.sqrt(1 + u * u);
+    const z = u * ch + root * sh;
+    const c = root * ch + u * sh;
+    const density = normalDensity(z);
+    const share = normalDistribution(z, density);
+    const steep = rise * density * c;
+    const row = N * i;
+    jacobian[row] = -steep / (root * w);
+    jacobian[row + 1] = (-steep * u) / root;
+    jacobian[row + 2] = 1 - share;
+    jacobian[row + 3] = share;
+    jacobian[row + 4] = steep;
+    model_K[i] = A + rise * share;
+  }
 }
 
-function worstReading(
-  data: FrontData,
-  weights: Float64Array,
-  at: Shape,
-  covariance: Float64Array,
-): number {
-  const j: Shape = [0, 0, 0, 0, 0];
+/** Of the shape last evaluated. */
+function worstReading(fit: Fit, covariance: Float64Array): number {
+  const { data, weights, jacobian, model_K } = fit;
   let worst = 0;
   let most = -1;
   for (let i = 0; i < weights.length; i++) {
-    const model = derivatives(data.x_m[i]!, at, j);
+    const row = N * i;
     let spread = 0;
     for (let a = 0; a < N; a++)
-      for (let b = 0; b < N; b++) spread += j[a]! * covariance[N * a + b]! * j[b]!;
+      for (let b = 0; b < N; b++)
+        spread += jacobian[row + a]! * covariance[N * a + b]! * jacobian[row + b]!;
     // A reading that the fit follows entirely (leverage 1) can show no residual.
     const free = 1 / weights[i]! - spread;
-    const size = free > 0 ? (data.temperature_K[i]! - model) ** 2 / free : 0;
+    const size = free > 0 ? (data.temperature_K[i]! - model_K[i]!) ** 2 / free : 0;
     if (size > most) {
       most = size;
       worst = i;
@@ -231,20 +265,15 @@ function worstReading(
   return worst;
 }
 
-function whitePart(
-  data: FrontData,
-  weights: Float64Array,
-  at: Shape,
-  covariance: Float64Array,
-): Float64Array {
+/** Of the shape last evaluated. */
+function whitePart(fit: Fit, covariance: Float64Array): Float64Array {
+  const { data, weights, jacobian } = fit;
   const white = new Float64Array(N * N);
-  const j: Shape = [0, 0, 0, 0, 0];
   const gain: Shape = [0, 0, 0, 0, 0];
   for (let i = 0; i < weights.length; i++) {
-    derivatives(data.x_m[i]!, at, j);
     for (let a = 0; a < N; a++) {
       let sum = 0;
-      for (let b = 0; b < N; b++) sum += covariance[N * a + b]! * j[b]!;
+      for (let b = 0; b < N; b++) sum += covariance[N * a + b]! * jacobian[N * i + b]!;
       gain[a] = sum * weights[i]! * data.white_K[i]!;
     }
     for (let a = 0; a < N; a++)

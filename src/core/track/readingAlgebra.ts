@@ -18,8 +18,8 @@ export function forwardSolve(
   }
   const w = new Float64Array(m * size);
   for (let a = 0; a < m; a++) {
-    const row = w.subarray(a * size, (a + 1) * size);
-    row.set(rows[a] as Float64Array);
+    const row = a * size;
+    w.set(rows[a] as Float64Array, row);
     let b = 0;
     // Four rows at a time: what is left of this one is read and written once for all four.
     for (; b + 4 <= a; b += 4) {
@@ -32,8 +32,8 @@ export function forwardSolve(
       const r2 = r1 + size;
       const r3 = r2 + size;
       for (let i = 0; i < size; i++) {
-        row[i] =
-          (row[i] as number) -
+        w[row + i] =
+          (w[row + i] as number) -
           l0 * (w[r0 + i] as number) -
           l1 * (w[r1 + i] as number) -
           l2 * (w[r2 + i] as number) -
@@ -43,10 +43,12 @@ export function forwardSolve(
     for (; b < a; b++) {
       const l = factor[a * m + b] as number;
       const other = b * size;
-      for (let i = 0; i < size; i++) row[i] = (row[i] as number) - l * (w[other + i] as number);
+      for (let i = 0; i < size; i++) {
+        w[row + i] = (w[row + i] as number) - l * (w[other + i] as number);
+      }
     }
     const own = factor[a * m + a] as number;
-    for (let i = 0; i < size; i++) row[i] = (row[i] as number) / own;
+    for (let i = 0; i < size; i++) w[row + i] = (w[row + i] as number) / own;
   }
   return w;
 }
