@@ -68,12 +68,12 @@ export function predictReading(
   out: ReadingModel,
 ): void {
   const { layout, tables } = model;
+  const { further } = state;
   const { cells } = layout;
-  const at = (index: number): number => state.further[index - cells] as number;
   const dx = tables.bed.length_m / cells;
   const thermocouple = model.string.thermocouples[sensor];
   if (thermocouple === undefined) throw new RangeError(`sensor ${sensor}: not in this string`);
-  const x = thermocouple.position_m + at(layout.position + sensor);
+  const x = thermocouple.position_m + (further[layout.position + sensor - cells] as number);
   const place = x / dx - 0.5;
   const cell = Math.min(cells - 2, Math.max(0, Math.floor(place)));
   const weight = Math.min(1, Math.max(0, place - cell));
@@ -88,18 +88,20 @@ export function predictReading(
   out.to = cell + 1;
   out.slope_K_m = (b - a) / dx;
   out.value_K =
-    a + weight * (b - a) + at(layout.offset + sensor) + (group >= 0 ? at(layout.group + group) : 0);
+    a +
+    weight * (b - a) +
+    (further[layout.offset + sensor - cells] as number) +
+    (group >= 0 ? (further[layout.group + group - cells] as number) : 0);
   addGas(model, state, x, out);
 }
 
 /** The gas's part of a reading, -s D, and its derivatives. */
 function addGas(model: TubeModel, state: TubeState, x: number, out: ReadingModel): void {
   const { layout, tables } = model;
-  const { gas } = state;
-  const at = (index: number): number => state.further[index - layout.cells] as number;
+  const { gas, further } = state;
   const near = Math.floor((x / tables.bed.length_m) * layout.cells);
   const before = state.gasLag_m[Math.min(layout.cells - 1, Math.max(0, near))] as number;
-  const lag = gas === undefined || before === 0 ? before : before * lagFactor(gas, at, layout);
+  const lag = gas === undefined || before === 0 ? before : before * lagFactor(gas, further, layout);
   const { gap } = out;
   out.lag_m = lag;
   if (gas === undefined || lag === 0) {
@@ -112,8 +114,9 @@ function addGas(model: TubeModel, state: TubeState, x: number, out: ReadingModel
     out.inletVariance_K2 = 0;
     return;
   }
-  const share = at(layout.share);
-  const inlet = gas.inlet_K + at(layout.inlet[lag > 0 ? 'charge_inlet' : 'discharge_inlet']);
+  const share = further[layout.share - layout.cells] as number;
+  const offset = layout.inlet[lag > 0 ? 'charge_inlet' : 'discharge_inlet'];
+  const inlet = gas.inlet_K + (further[offset - layout.cells] as number);
   gasGap(tables, state.enthalpy, x, lag, inlet, -share, out.weights, gap);
   out.from = Math.min(out.from, gap.from);
   out.to = Math.max(out.to, gap.to);
@@ -140,29 +143,52 @@ export function projectReading(
   const p = state.covariance;
   const rowOffset = (layout.offset + sensor) * size;
   const rowPosition = (layout.position + sensor) * size;
-  const slope = reading.slope_K_m;
-  for (let j = 0; j < size; j++) {
-    out[j] = slope * (p[rowPosition + j] as number) + (p[rowOffset + j] as number);
-  }
-  const { weights, to } = reading;
-  let i = reading.from;
-  for (; i + 1 <= to; i += 2) {
-    addRows(out, p, i * size, weights[i] as number, (i + 1) * size, weights[i + 1] as number);
-  }
-  // Three rows may be left: a last cell, the group, the inlet; those that are not stand in with 0.
-  if (i <= to) addRows(out, p, i * size, weights[i] as number, i * size, 0);
+  const { weights, from, to, slope_K_m } = reading;
   const group = layout.groupOf[sensor] as number;
-  if (group >= 0) addRows(out, p, (layout.group + group) * size, 1, rowOffset, 0);
+  out.fill(0);
+  const [first, second] = [weightAt(reading, from), weightAt(reading, from + 1)];
+  addRows(
+    out,
+    p,
+    rowPosition,
+    slope_K_m,
+    rowOffset,
+    1,
+    from * size,
+    first,
+    from * size + size,
+    second,
+  );
+  let i = from + 2;
+  for (; i + 3 <= to; i += 4) {
+    const row = i * size;
+    const [a, b] = [weights[i] as number, weights[i + 1] as number];
+    const [c, d] = [weights[i + 2] as number, weights[i + 3] as number];
+    addRows(out, p, row, a, row + size, b, row + 2 * size, c, row + 3 * size, d);
+  }
+  // The last cells and the group; those that are not stand in with 0.
+  if (i <= to || group >= 0) {
+    const row = i * size;
+    const [a, b, c] = [weightAt(reading, i), weightAt(reading, i + 1), weightAt(reading, i + 2)];
+    const common = group >= 0 ? (layout.group + group) * size : rowOffset;
+    addRows(out, p, row, a, row + size, b, row + 2 * size, c, common, group >= 0 ? 1 : 0);
+  }
   if (reading.lag_m !== 0) {
-    const { flow, transfer, share } = layout;
-    addRows(out, p, flow * size, reading.perFlow_K, transfer * size, reading.perTransfer_K);
-    const inlet = inletOf(model, reading) * size;
-    addRows(out, p, share * size, -reading.gap.gap_K, inlet, reading.perInlet);
+    const { perFlow_K, perTransfer_K, perInlet } = reading;
+    const [flow, transfer] = [layout.flow * size, layout.transfer * size];
+    const [share, inlet] = [layout.share * size, inletOf(model, reading) * size];
+    const gap = -reading.gap.gap_K;
+    addRows(out, p, flow, perFlow_K, transfer, perTransfer_K, share, gap, inlet, perInlet);
   }
   return observe(model, sensor, reading, out);
 }
 
-/** out <- out + a P_a + b P_b, two rows of P. */
+/** dz/dT of a cell; 0 beyond those that the reading depends on. */
+function weightAt({ weights, to }: ReadingModel, cell: number): number {
+  return cell <= to ? (weights[cell] as number) : 0;
+}
+
+/** out <- out + a P_a + b P_b + c P_c + d P_d, four rows of P in one pass over `out`. */
 function addRows(
   out: Float64Array,
   p: Float64Array,
@@ -170,16 +196,26 @@ function addRows(
   a: number,
   rowB: number,
   b: number,
+  rowC: number,
+  c: number,
+  rowD: number,
+  d: number,
 ): void {
   for (let j = 0; j < out.length; j++) {
-    out[j] = (out[j] as number) + a * (p[rowA + j] as number) + b * (p[rowB + j] as number);
+    out[j] =
+      (out[j] as number) +
+      a * (p[rowA + j] as number) +
+      b * (p[rowB + j] as number) +
+      c * (p[rowC + j] as number) +
+      d * (p[rowD + j] as number);
   }
 }
 
 /** l/l_0: how flow and transfer have moved since the bed was. */
-function lagFactor(gas: TubeGas, at: (index: number) => number, layout: TubeLayout): number {
-  const flow = at(layout.flow) - gas.flow;
-  return Math.exp(gas.flowSlope * flow - (at(layout.transfer) - gas.transfer));
+function lagFactor(gas: TubeGas, further: Float64Array, layout: TubeLayout): number {
+  const flow = (further[layout.flow - layout.cells] as number) - gas.flow;
+  const transfer = (further[layout.transfer - layout.cells] as number) - gas.transfer;
+  return Math.exp(gas.flowSlope * flow - transfer);
 }
 
 /** State of the offset of the gas that enters. */
