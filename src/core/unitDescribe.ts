@@ -5,9 +5,10 @@ import type { Estimate, ProfileView, Quality, StoreEstimate } from './estimate.j
 import { countThermocouples, type ScanCounts } from './scanCounts.js';
 import { type GasDoubt, gasDoubts } from './track/gasDoubts.js';
 import { implausibleReadings, touchesEstimate } from './track/plausible.js';
-import { estimateStore, profileOf } from './track/storeEstimate.js';
+import { estimateStore, profileOf, tubeFronts } from './track/storeEstimate.js';
 import type { StoreState } from './track/storeTracker.js';
 import { describeViews, type StoreViews, storeSpread } from './track/storeViews.js';
+import type { TubeState } from './track/tube.js';
 import type { UnitAsk, UnitStep } from './unit.js';
 import type { UnitModel } from './unitModel.js';
 import type { UnitState } from './unitState.js';
@@ -33,11 +34,15 @@ export function describe(model: UnitModel, state: UnitState, taken: Taken, ask: 
     const storeState = state.stores[s] as StoreState;
     const ratio = storeSpread(store, storeState, state.views[s] as StoreViews, fronts.fronts);
     spread[store.store.id] = ratio;
+    const own = store.tubes.map((tube, k) =>
+      tubeFronts(store, tube, storeState.tubes[k] as TubeState),
+    );
     stores[store.store.id] = estimateStore(store, storeState, {
-      front_views: describeViews(store, storeState, views),
+      front_views: describeViews(store, own, views),
       spread_ratio: ratio?.ratio ?? null,
       flowing,
       fronts,
+      tubeFronts: own,
       energy,
     });
   });

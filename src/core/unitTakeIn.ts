@@ -9,7 +9,7 @@ import type { FrontViewStep } from './track/frontView.js';
 import { followGas, type GasMemories, startGasMemories } from './track/gasDoubts.js';
 import { withoutImplausible } from './track/plausible.js';
 import { type StoreEnergy, storeEnergy } from './track/storeEnergy.js';
-import { storeFronts } from './track/storeEstimate.js';
+import { meanTemperatures, storeFronts } from './track/storeEstimate.js';
 import { type StoreState, type StoreStep, startStore, stepStore } from './track/storeTracker.js';
 import { type StoreViews, startViews, stepViews } from './track/storeViews.js';
 import { followOrigin } from './track/unseenFlow.js';
@@ -101,7 +101,8 @@ export function takeIn(model: UnitModel, state: UnitState, raw: Scan): Taken {
     );
     followOrigin(store, storeState, step === 'reacquired');
     const energy = storeEnergy(store, storeState);
-    const fronts = storeFronts(store, storeState, energy);
+    const mean_K = meanTemperatures(store, storeState);
+    const fronts = storeFronts(store, storeState, energy, mean_K);
     const unknown = state.unknownTravel_m[s] as number;
     // With the flow still unknown it goes on adding up, until the profile is drawn anew: a filter that
     // must follow a front it does not expect would bend its factors and offsets to explain it.
@@ -125,6 +126,7 @@ export function takeIn(model: UnitModel, state: UnitState, raw: Scan): Taken {
       drive,
       scan.values,
       fronts.fronts,
+      mean_K,
       unknown,
     );
     return { step, energy, fronts, views, inlet_K: drive?.inlet_K ?? Number.NaN };

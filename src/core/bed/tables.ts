@@ -23,6 +23,8 @@ export interface BedTables {
   /** Per segment: C = dH/dT [J/m3K], c_f = de/dT [J/kgK]. */
   readonly heatCapacity: Float64Array;
   readonly fluidHeatCapacity: Float64Array;
+  /** Of all segments. */
+  readonly greatestHeatCapacity_J_m3K: number;
   /**
    * Per segment, film coefficient h = filmStill + filmFlow G^0.6 [W/m2K] (Wakao & Kaguei 1982) and
    * particle resistance d/(10 k_s) [m2K/W] (h_eff = h/(1 + Bi/5), Jeffreson 1972).
@@ -75,6 +77,10 @@ export function buildBedTables(
     fluidEnthalpy[node] = bed.fluid.enthalpy(guess);
   }
 
+  const heatCapacity = new Float64Array(segments);
+  for (let s = 0; s < segments; s++) {
+    heatCapacity[s] = dH / ((temperature_K[s + 1] as number) - (temperature_K[s] as number));
+  }
   const solidShare = liquidSolidShare(bed, (low_K + high_K) / 2);
   const tables: BedTables = {
     bed,
@@ -83,8 +89,9 @@ export function buildBedTables(
     inverse_dH: 1 / dH,
     temperature_K,
     fluidEnthalpy,
-    heatCapacity: new Float64Array(segments),
+    heatCapacity,
     fluidHeatCapacity: new Float64Array(segments),
+    greatestHeatCapacity_J_m3K: Math.max(...heatCapacity),
     filmStill: new Float64Array(segments),
     filmFlow: new Float64Array(segments),
     particleResistance: new Float64Array(segments),
@@ -96,7 +103,6 @@ export function buildBedTables(
     const t0 = temperature_K[s] as number;
     const t1 = temperature_K[s + 1] as number;
     const t = 0.5 * (t0 + t1);
-    tables.heatCapacity[s] = dH / (t1 - t0);
     tables.fluidHeatCapacity[s] =
       ((fluidEnthalpy[s + 1] as number) - (fluidEnthalpy[s] as number)) / (t1 - t0);
     tables.filmStill[s] = filmStill(bed, t);

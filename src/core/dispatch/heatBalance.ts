@@ -1,6 +1,6 @@
 import type { Direction } from '../definitions.js';
 import { referenceEnthalpies, type StoreEnergy } from '../track/storeEnergy.js';
-import { meanTemperatures, mixedOutlet } from '../track/storeEstimate.js';
+import { meanTemperatureAt, meanTemperatures, mixedOutlet } from '../track/storeEstimate.js';
 import type { StoreModel, StoreState } from '../track/storeTracker.js';
 import { lastingShare } from './lasting.js';
 
@@ -186,12 +186,13 @@ function steelOf(model: StoreModel, state: StoreState): number {
 /** Heat lost through mantle and ends, as modelled [W]. */
 function lossOf(model: StoreModel, state: StoreState, ambient_K: number): number {
   const { bed } = model.store;
-  const profile = meanTemperatures(model, state);
-  const beside = state.wall?.steel_K ?? profile;
+  const beside = state.wall?.steel_K ?? meanTemperatures(model, state);
   const mantle = beside.reduce((sum, T) => sum + T, 0) / beside.length - ambient_K;
+  const first = meanTemperatureAt(model, state, 0);
+  const last = meanTemperatureAt(model, state, model.x_m.length - 1);
   const ends =
-    bed.end_loss_W_m2K.charge_inlet * ((profile[0] as number) - ambient_K) +
-    bed.end_loss_W_m2K.discharge_inlet * ((profile[profile.length - 1] as number) - ambient_K);
+    bed.end_loss_W_m2K.charge_inlet * (first - ambient_K) +
+    bed.end_loss_W_m2K.discharge_inlet * (last - ambient_K);
   return (
     bed.loss_factor *
     (bed.wall_loss_W_m2K * Math.PI * bed.diameter_m * bed.length_m * mantle + bed.area_m2 * ends)

@@ -1,6 +1,5 @@
 import { type BedWork, createBedWork } from '../bed/kernel.js';
 import { enthalpyAt, temperatureAt } from '../bed/tables.js';
-import { cellCentres } from '../track/storeEstimate.js';
 import { plausibleRange } from '../track/storeStart.js';
 import type { StoreModel, StoreState } from '../track/storeTracker.js';
 import { type Stream, streamsOf } from '../track/streams.js';
@@ -230,7 +229,6 @@ export function perturb(
 
 /** Overlapping triangular bumps that add up to one along the bed. */
 export function bumpWeights(model: StoreModel, bump: number): Float64Array {
-  const x = cellCentres(model);
   const pitch = model.store.bed.length_m / (BUMPS - 1);
-  return x.map((at) => Math.max(0, 1 - Math.abs(at - bump * pitch) / pitch));
+  return model.x_m.map((at) => Math.max(0, 1 - Math.abs(at - bump * pitch) / pitch));
 }

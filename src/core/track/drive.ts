@@ -4,7 +4,7 @@ import type { Scan } from '../scan/scan.js';
 import type { UnitModel } from '../unitModel.js';
 import type { UnitState } from '../unitState.js';
 import type { Conditions } from './conditions.js';
-import { meanTemperatures } from './storeEstimate.js';
+import { meanTemperatureAt } from './storeEstimate.js';
 import type { StoreState } from './storeTracker.js';
 import type { TubeDrive } from './tube.js';
 
@@ -25,8 +25,8 @@ export function storeOutlets(
     const read = channel >= 0 && scan !== null ? (scan.values[channel] as number) : Number.NaN;
     const running = state.mode === direction;
     if (running && Number.isFinite(read)) return read;
-    const mean = meanTemperatures(store, state.stores[s] as StoreState);
-    return (direction === 'charge' ? mean[mean.length - 1] : mean[0]) as number;
+    const cell = direction === 'charge' ? store.x_m.length - 1 : 0;
+    return meanTemperatureAt(store, state.stores[s] as StoreState, cell);
   };
   const hot = model.stores.findIndex((s) => s.store.kind === 'hot');
   const cold = model.stores.findIndex((s) => s.store.kind === 'cold');

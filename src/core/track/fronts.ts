@@ -74,13 +74,14 @@ export function findFronts(
     const first = turns[k]!;
     const last = turns[k + 1]!;
     const falls = temperature_K[first]! > temperature_K[last]!;
-    const level = (theta: number) => reference_cold_K + theta * range;
-    const middle = steepest(x_m, temperature_K, level(0.5), first, last, falls);
+    const half = reference_cold_K + 0.5 * range;
+    const middle = steepest(x_m, temperature_K, half, first, last, falls);
     if (middle === null) continue;
     const at = middle.index;
-    const [before, after] = falls ? [LEVEL_HIGH, LEVEL_LOW] : [LEVEL_LOW, LEVEL_HIGH];
-    const upstream = nearest(x_m, temperature_K, level(before), at, first, falls);
-    const downstream = nearest(x_m, temperature_K, level(after), at, last, falls);
+    const low = reference_cold_K + LEVEL_LOW * range;
+    const high = reference_cold_K + LEVEL_HIGH * range;
+    const upstream = nearest(x_m, temperature_K, falls ? high : low, at, first, falls);
+    const downstream = nearest(x_m, temperature_K, falls ? low : high, at, last, falls);
     fronts.push({
       position_m: middle.x_m,
       width_m:

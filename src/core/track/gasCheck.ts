@@ -171,7 +171,7 @@ function sweptRock(
   const { bed } = model.store;
   const steel = bed.end_capacity_J_K[end] / bed.area_m2;
   const passed = FLOW_SURE * (swept_J_m2K - STEEL_TIMES * steel);
-  const heatCapacity = Math.max(...model.tables.heatCapacity);
+  const heatCapacity = model.tables.greatestHeatCapacity_J_m3K;
   const values: number[] = [];
   let deepest = 0;
   if (!(passed > 0)) return { values, depth_m: deepest };

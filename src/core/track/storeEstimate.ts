@@ -17,13 +17,6 @@ import { streamsOf } from './streams.js';
 import { type TubeModel, type TubeState, tubeTemperatures } from './tube.js';
 import { storeEnergyPosition } from './unseenFlow.js';
 
-/** Cell centres of a store's tubes [m]. */
-export function cellCentres(model: StoreModel): Float64Array {
-  const cells = (model.tubes[0] as TubeModel).layout.cells;
-  const dx = model.store.bed.length_m / cells;
-  return Float64Array.from({ length: cells }, (_, i) => (i + 0.5) * dx);
-}
-
 /** Area-mean temperatures [K]. */
 export function meanTemperatures(model: StoreModel, state: StoreState): Float64Array {
   const cells = (model.tubes[0] as TubeModel).layout.cells;
@@ -37,16 +30,29 @@ export function meanTemperatures(model: StoreModel, state: StoreState): Float64A
   return mean;
 }
 
-/** Fronts of the store's area-mean profile with their sigmas, ordered by x. */
+/** Area-mean temperature of one cell [K], as `meanTemperatures` has it. */
+export function meanTemperatureAt(model: StoreModel, state: StoreState, cell: number): number {
+  let mean = 0;
+  for (const { share, enthalpy } of streamsOf(model, state)) {
+    mean += share * temperatureAt(model.tables, enthalpy[cell] as number);
+  }
+  return mean;
+}
+
+/**
+ * Fronts of the store's area-mean profile with their sigmas, ordered by x.
+ *
+ * @param mean_K that profile
+ */
 export function storeFronts(
   model: StoreModel,
   state: StoreState,
   energy: StoreEnergy,
+  mean_K = meanTemperatures(model, state),
 ): { fronts: FrontEstimate[]; reason: FrontReason | null } {
   if (!state.started) return { fronts: [], reason: 'not_started' };
   const { store } = model;
-  const mean = meanTemperatures(model, state);
-  const found = findFronts(cellCentres(model), mean, store.reference_hot_K, store.reference_cold_K);
+  const found = findFronts(model.x_m, mean_K, store.reference_hot_K, store.reference_cold_K);
   const covariance = meanCovariance(model, state, energy.correlation);
   const unseen_m = energy.unseen * store.bed.length_m;
   return {
@@ -75,6 +81,8 @@ export function estimateStore(
     spread_ratio: number | null;
     flowing: boolean;
     fronts: ReturnType<typeof storeFronts>;
+    /** Of each tube; see `tubeFronts`. */
+    tubeFronts: readonly (readonly FrontEstimate[])[];
     energy: StoreEnergy;
   },
 ): StoreEstimate {
@@ -93,7 +101,9 @@ export function estimateStore(
     spread_ratio: extra.spread_ratio,
     heat_transfer_factor: store.bed.heat_transfer_factor * transfer.value,
     heat_transfer_factor_sigma: store.bed.heat_transfer_factor * transfer.sigma,
-    strings: model.tubes.map((tube, k) => describeString(model, tube, state.tubes[k] as TubeState)),
+    strings: model.tubes.map((tube, k) =>
+      describeString(tube, state.tubes[k] as TubeState, extra.tubeFronts[k]?.[0]),
+    ),
     front_views: extra.front_views,
     sensors: { used: state.used, rejected: rejectedSensors(model, state) },
     outlet_K: extra.flowing && Number.isFinite(outlet) ? outlet : null,
@@ -127,15 +137,18 @@ export function tubeFronts(model: StoreModel, tube: TubeModel, state: TubeState)
   const { store } = model;
   const { size, cells } = tube.layout;
   const own = tubeTemperatures(tube, state, new Float64Array(cells));
-  const x = cellCentres(model);
-  const { fronts } = findFronts(x, own, store.reference_hot_K, store.reference_cold_K);
-  const covariance: Covariance = (i, j) => state.covariance[i * size + j] as number;
-  return fronts.map((front) => describe(front, covariance, 0));
+  const { fronts } = findFronts(model.x_m, own, store.reference_hot_K, store.reference_cold_K);
+  return fronts.map((front) =>
+    describe(front, (i, j) => state.covariance[i * size + j] as number, 0),
+  );
 }
 
-function describeString(model: StoreModel, tube: TubeModel, state: TubeState): StringEstimate {
+function describeString(
+  tube: TubeModel,
+  state: TubeState,
+  front: FrontEstimate | undefined,
+): StringEstimate {
   const { flow, size, cells } = tube.layout;
-  const front = tubeFronts(model, tube, state)[0];
   const factor = Math.exp(state.further[flow - cells] as number);
   return {
     id: tube.string.id,
@@ -214,7 +227,7 @@ export function profileOf(
     });
   });
   return {
-    x_m: Array.from(cellCentres(model)),
+    x_m: Array.from(model.x_m),
     tubes,
     mean_K: Array.from(meanTemperatures(model, state)),
     readings,

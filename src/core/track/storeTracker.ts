@@ -34,6 +34,8 @@ export interface StoreModel {
   readonly deadbands_K: readonly (readonly number[])[];
   readonly scratch: readonly TubeScratch[];
   readonly wall: WallModel | null;
+  /** Cell centres of the tubes [m]. */
+  readonly x_m: Float64Array;
 }
 
 /** Everything a store's tracking remembers. */
@@ -75,7 +77,13 @@ export function storeModel(
     deadbands_K,
     scratch: tubes.map((tube, k) => sharedTubeScratch(tube.layout, k)),
     wall: wallModel(tables, tubes),
+    x_m: cellCentres(store.bed.length_m, (tubes[0] as TubeModel).layout.cells),
   };
+}
+
+function cellCentres(length_m: number, cells: number): Float64Array {
+  const dx = length_m / cells;
+  return Float64Array.from({ length: cells }, (_, i) => (i + 0.5) * dx);
 }
 
 export function startStore(model: StoreModel): StoreState {

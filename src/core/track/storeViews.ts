@@ -16,9 +16,9 @@ import {
   stepFrontView,
 } from './frontView.js';
 import { frontSpeed, frontSpread } from './frontViewTravel.js';
-import { meanFactor, meanTemperatures, tubeFronts } from './storeEstimate.js';
+import { meanFactor } from './storeEstimate.js';
 import type { StoreModel, StoreState } from './storeTracker.js';
-import type { TubeDrive, TubeModel, TubeState } from './tube.js';
+import type { TubeDrive, TubeModel } from './tube.js';
 import { storeEnergyPosition } from './unseenFlow.js';
 
 /** Maintenance's view of a store: the front view of each string, and the healthy twin. Plain. */
@@ -63,6 +63,7 @@ export function twinOf(model: StoreModel): TwinModel {
  * flow (times the filter's mean flow factor), inlet and ambient.
  *
  * @param drive null for the first scan
+ * @param mean_K area-mean profile of the tubes, its fronts in `fronts`
  */
 export function stepViews(
   model: StoreModel,
@@ -71,6 +72,7 @@ export function stepViews(
   drive: TubeDrive | null,
   values: Float64Array,
   fronts: readonly FrontEstimate[],
+  mean_K: Float64Array,
   unknownTravel_m: number,
 ): FrontViewStep[] {
   if (drive !== null && drive.massFlux_kg_m2s !== 0) {
@@ -83,7 +85,7 @@ export function stepViews(
       ambient_K: drive.ambient_K,
       dt_s: drive.dt_s,
       unknownTravel_m,
-      mean_K: meanTemperatures(model, state),
+      mean_K,
       fronts,
     });
   }
@@ -163,13 +165,12 @@ function expectedMotion(
 /** Front views with their disagreement with the nearest front of the same string's tube. */
 export function describeViews(
   model: StoreModel,
-  state: StoreState,
+  tubeFronts: readonly (readonly FrontEstimate[])[],
   steps: readonly FrontViewStep[],
 ): FrontViewEstimate[] {
   return steps.map((step) => {
     const k = model.tubes.findIndex((tube) => tube.string.id === step.id);
-    const fronts = tubeFronts(model, model.tubes[k] as TubeModel, state.tubes[k] as TubeState);
-    const nearest = fronts.reduce<FrontEstimate | null>(
+    const nearest = (tubeFronts[k] ?? []).reduce<FrontEstimate | null>(
       (best, next) =>
         best === null ||
         Math.abs((next.position_m as number) - (step.position_m ?? 0)) <

@@ -24,15 +24,15 @@ export function streamsOf(model: StoreModel, state: StoreState): Stream[] {
   const { wall } = model;
   const streams = model.tubes.map((tube, k): Stream => {
     const own = state.tubes[k] as TubeState;
-    const at = (index: number): number => own.further[index - tube.layout.cells] as number;
+    const { cells, flow, transfer } = tube.layout;
     return {
       share: wall?.ring.includes(k)
         ? tube.string.area_share * (1 - wall.share / wall.ringShare)
         : tube.string.area_share,
       enthalpy: own.enthalpy,
       outlet_K: own.outlet_K,
-      flowFactor: Math.exp(at(tube.layout.flow)),
-      heatTransferFactor: Math.exp(at(tube.layout.transfer)),
+      flowFactor: Math.exp(own.further[flow - cells] as number),
+      heatTransferFactor: Math.exp(own.further[transfer - cells] as number),
       wallLoss_W_m3K: tube.wallLoss_W_m3K,
     };
   });

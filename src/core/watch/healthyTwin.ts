@@ -168,7 +168,7 @@ export function stepTwin(model: TwinModel, state: TwinState, input: TwinInput): 
 
 /** Temperatures of the twin's cells [K], for pages and tests. */
 export function twinTemperatures(model: TwinModel, enthalpy: Float64Array): Float64Array {
-  return Float64Array.from(enthalpy, (h) => temperatureAt(model.tables, h));
+  return enthalpy.map((h) => temperatureAt(model.tables, h));
 }
 
 /** Fronts of a profile on the twin's cells. */
