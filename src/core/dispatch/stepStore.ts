@@ -2,7 +2,8 @@ import { type BedWork, bedSubstep, planSubsteps } from '../bed/kernel.js';
 import { pressureDrop } from '../bed/pressureDrop.js';
 import { temperatureAt } from '../bed/tables.js';
 import type { StoreEnd } from '../definitions.js';
-import { exchangeAtWall, shareAround } from '../track/wallZone.js';
+import { exchangeAtWall } from '../track/wallExchange.js';
+import { shareAround } from '../track/wallZone.js';
 import type { RolloutStore } from './rollout.js';
 
 /** Area-mean temperature of a bed's end [K]. */
@@ -69,7 +70,7 @@ export function stepStore(
       // The layers are the last streams, and this is the last of them.
       const layers = beds.slice(k + 1 - wall.layers.length, k + 1);
       const before = wall.ring.length > 1 ? beside.slice() : null;
-      exchangeAtWall(wall, store.tables, layers, steel, beside, step);
+      exchangeAtWall(wall, store.tables, layers, steel, beside, step, work.slopeFlow);
       if (before !== null) {
         const all = beds.map((enthalpy) => ({ enthalpy }));
         shareAround(wall, all, before);

@@ -8,6 +8,7 @@ import {
   type TubeState,
   tubeStep,
 } from './tube.js';
+import { exchangeAtWall } from './wallExchange.js';
 
 /**
  * The rock at the wall that no thermocouple sees: it gives heat to the vessel's steel and through it
@@ -71,8 +72,6 @@ const LAYERS = [1, 0.5, 0.25] as const;
 const LEAST_SHARE = 0.01;
 /** Contact and radiation between rock and wall [W/m2K]: common practice for a packed wall, no source. */
 const CONTACT_W_M2K = 10;
-/** Radial mixing over G cf d (Wakao & Kaguei 1982, radial dispersion 0.1 Re Pr k_f). */
-const RADIAL_MIXING = 0.1;
 /**
  * Flow that the looser packing lets through at the wall over that of the bed far from it, as the
  * thickness of bed [particle diameters] that would pass it. The equations of Ergun and Brinkman for
@@ -203,7 +202,8 @@ export function stepWall(
     }
     wall.outlet_K[i] = drive.massFlux_kg_m2s === 0 ? Number.NaN : out / substeps;
   });
-  exchangeAtWall(model, tables, wall.enthalpy, wall.steel_K, tube.enthalpy, whole);
+  const { slopeFlow } = scratch.probe;
+  exchangeAtWall(model, tables, wall.enthalpy, wall.steel_K, tube.enthalpy, whole, slopeFlow);
 }
 
 /** What the exchange at the wall has done to one tube of the ring, done to the others as well. */
@@ -218,68 +218,6 @@ export function shareAround(
     const own = (tubes[k] as { enthalpy: Float64Array }).enthalpy;
     for (let i = 0; i < own.length; i++) {
       own[i] = (own[i] as number) + (leader[i] as number) - (before[i] as number);
-    }
-  }
-}
-
-/** Share of a layer's heat that one explicit step may move. */
-const MOST_MOVED = 0.25;
-
-/**
- * Heat between layers, steel and the outermost tube over a step, all changed in place. Steel relaxes
- * exactly towards its layer and ambient; the rest is explicit, in parts short enough for that.
- *
- * @param layers enthalpy of each layer's cells, as in the model [J/m3]
- * @param steel_K temperature of the steel beside each cell [K]
- * @param tube enthalpy of the outermost tube's cells [J/m3]
- */
-export function exchangeAtWall(
-  model: WallModel,
-  tables: BedTables,
-  layers: readonly Float64Array[],
-  steel_K: Float64Array,
-  tube: Float64Array,
-  step: Pick<BedStep, 'massFlux_kg_m2s' | 'ambient_K' | 'dt_s'>,
-): void {
-  const { exchange_W_m3K: x, loss_W_m3K: u, steel_J_m3K: c } = model;
-  const middle = tables.segments >> 1;
-  const mixing =
-    RADIAL_MIXING *
-    Math.abs(step.massFlux_kg_m2s) *
-    tables.bed.particle_diameter_m *
-    (tables.fluidHeatCapacity[middle] as number);
-  const { stagnant, segments, inverse_dH } = tables;
-  const last = layers.length - 1;
-  const outermost = layers[last] as Float64Array;
-  // Radiation between the pieces makes the hottest rock conduct best.
-  const most = Math.max(stagnant[0] as number, stagnant[segments - 1] as number) + mixing;
-  const fastest = Math.max(x, 2 * most * (model.layers[last]?.radial_1_m2 ?? 0));
-  const least = tables.heatCapacity[0] as number;
-  const parts = Math.max(1, Math.ceil((step.dt_s * fastest) / least / MOST_MOVED));
-  const dt = step.dt_s / parts;
-  const fade = Math.exp((-(x + u) * dt) / c);
-  for (let n = 0; n < parts; n++) {
-    for (let i = 0; i < tube.length; i++) {
-      const t = temperatureAt(tables, outermost[i] as number);
-      const steel = steel_K[i] as number;
-      const settled = (x * t + u * step.ambient_K) / (x + u);
-      const next = settled + (steel - settled) * fade;
-      // What the steel took, and what it lost meanwhile at its mean temperature.
-      const lost = u * dt * (0.5 * (steel + next) - step.ambient_K);
-      for (let l = last; l >= 0; l--) {
-        const { towards, radial_1_m2, volumeRatio } = model.layers[l] as WallLayer;
-        const inwards = towards >= 0 ? (layers[towards] as Float64Array) : tube;
-        const own = layers[l] as Float64Array;
-        const outer = temperatureAt(tables, own[i] as number);
-        const inner = temperatureAt(tables, inwards[i] as number);
-        const s = Math.floor((own[i] as number) * inverse_dH);
-        const k = (stagnant[s < 0 ? 0 : s < segments ? s : segments - 1] as number) + mixing;
-        const across = radial_1_m2 * k * dt * (outer - inner);
-        own[i] = (own[i] as number) - across;
-        inwards[i] = (inwards[i] as number) + across * volumeRatio;
-      }
-      steel_K[i] = next;
-      outermost[i] = (outermost[i] as number) - c * (next - steel) - lost;
     }
   }
 }

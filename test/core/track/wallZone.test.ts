@@ -4,7 +4,7 @@ import { loadSite } from '../../../src/config/load.js';
 import type { StoreDefinition } from '../../../src/core/definitions.js';
 import { startStore, storeModel } from '../../../src/core/track/storeTracker.js';
 import { streamsOf } from '../../../src/core/track/streams.js';
-import { exchangeAtWall } from '../../../src/core/track/wallZone.js';
+import { exchangeAtWall } from '../../../src/core/track/wallExchange.js';
 
 const unit = loadSite(new URL('../../../config/demo.yaml', import.meta.url).pathname).units[0]!;
 

@@ -2,7 +2,8 @@ import { type BedWork, bedSubstep, createBedWork, planSubsteps } from '../../bed
 import { type BedTables, temperatureAt } from '../../bed/tables.js';
 import type { StoreModel, StoreState } from '../../track/storeTracker.js';
 import { type Stream, streamsOf } from '../../track/streams.js';
-import { exchangeAtWall, shareAround, type WallModel } from '../../track/wallZone.js';
+import { exchangeAtWall } from '../../track/wallExchange.js';
+import { shareAround, type WallModel } from '../../track/wallZone.js';
 import { type FinerWall, finerWall } from './finerWall.js';
 
 /** What is varied, one thing at a time, to learn how readings of a rest depend on it. */
