@@ -49,9 +49,7 @@ export function lookAt(state: UnitState, counts: Unsound): void {
     for (const tube of store.tubes) {
       const { covariance } = tube;
       const size = Math.round(Math.sqrt(covariance.length));
-      const finite = [tube.enthalpy, tube.further, covariance].every((a) =>
-        a.every(Number.isFinite),
-      );
+      const finite = [tube.enthalpy, tube.further, covariance].every(allFinite);
       if (!finite || !Number.isFinite(tube.surprise)) now.not_finite = 1;
       if (!symmetric(covariance, size)) now.not_symmetric = 1;
       for (let i = 0; i < size; i++) {
@@ -65,10 +63,16 @@ export function lookAt(state: UnitState, counts: Unsound): void {
     }
     if (store.wall === null) continue;
     const wall = [...store.wall.enthalpy, store.wall.steel_K];
-    if (!wall.every((a) => a.every(Number.isFinite))) now.not_finite = 1;
+    if (!wall.every(allFinite)) now.not_finite = 1;
   }
   for (const key of COUNTED) counts[key] += now[key];
   counts.least = Math.min(counts.least, now.least);
+}
+
+/** A plain loop: over all covariances a call for each element took a fifth of a scan. */
+function allFinite(values: Float64Array): boolean {
+  for (let i = 0; i < values.length; i++) if (!Number.isFinite(values[i])) return false;
+  return true;
 }
 
 function symmetric(matrix: Float64Array, size: number): boolean {
