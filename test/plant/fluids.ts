@@ -73,22 +73,30 @@ const ACENTRIC: readonly (readonly [number, number])[] = [
   [8, -0.008],
 ];
 
-/** B [m3/mol] and d2B/dT2 [m3/molK2]. */
-function virial(gas: GasData, T: number): { B: number; curvature: number } {
+/** B [m3/mol]. */
+function virial(gas: GasData, T: number): number {
   const scale = (R * gas.critical_K) / gas.critical_Pa;
   const x = gas.critical_K / T;
   let B = 0;
+  for (const [n, a] of SIMPLE) B += scale * a * x ** n;
+  for (const [n, a] of ACENTRIC) B += scale * gas.acentric * a * x ** n;
+  return B;
+}
+
+/** d2B/dT2 [m3/molK2]. */
+function virialCurvature(gas: GasData, T: number): number {
+  const scale = (R * gas.critical_K) / gas.critical_Pa;
+  const x = gas.critical_K / T;
   let curvature = 0;
   for (const [terms, weight] of [
     [SIMPLE, 1],
     [ACENTRIC, gas.acentric],
   ] as const) {
     for (const [n, a] of terms) {
-      B += scale * weight * a * x ** n;
       curvature += (scale * weight * a * n * (n + 1) * x ** n) / (T * T);
     }
   }
-  return { B, curvature };
+  return curvature;
 }
 
 function realGas(name: string, gas: GasData, pressure_Pa: number): TruthFluid {
@@ -99,10 +107,10 @@ function realGas(name: string, gas: GasData, pressure_Pa: number): TruthFluid {
     liquid: false,
     heatCapacity: (T) =>
       gas.heatCapacity(T) -
-      (pressure_Pa * held(T) * virial(gas, held(T)).curvature) / gas.molarMass_kg,
+      (pressure_Pa * held(T) * virialCurvature(gas, held(T))) / gas.molarMass_kg,
     viscosity: gas.viscosity,
     conductivity: gas.conductivity,
-    density: (T) => gas.molarMass_kg / ((R * T) / pressure_Pa + virial(gas, held(T)).B),
+    density: (T) => gas.molarMass_kg / ((R * T) / pressure_Pa + virial(gas, held(T))),
   };
 }
 
