@@ -117,13 +117,15 @@ export function calibrate(
     const loss = spread.partLoad.discharge * spread.partLoadSigma * (1 - load * load);
     (g.covariance[discharge] as Float64Array)[discharge]! += loss * loss;
   }
-  const joint = transformed(g, [
-    ...model.stores.map((_, s) => row({ 0: 1, 1: load, [2 + s]: -1 })),
-    row({ 0: 1, 1: load, [discharge]: 1 }),
-    ...(chargeLoad === null ? [] : [row({ 0: 1, 1: chargeLoad, [charge]: 1 })]),
-  ]);
   return {
-    joint,
+    // Made where it is asked for: each scan asks for the capacity alone.
+    get joint() {
+      return transformed(g, [
+        ...model.stores.map((_, s) => row({ 0: 1, 1: load, [2 + s]: -1 })),
+        row({ 0: 1, 1: load, [discharge]: 1 }),
+        ...(chargeLoad === null ? [] : [row({ 0: 1, 1: chargeLoad, [charge]: 1 })]),
+      ]);
+    },
     capacity: model.stores.map((_, s) => ({
       log: g.mean[2 + s] as number,
       sigma: Math.sqrt(Math.max(0, g.covariance[2 + s]?.[2 + s] as number)),

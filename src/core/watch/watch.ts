@@ -87,14 +87,18 @@ export function stepWatch(
   const events: WatchEvent[] = [];
   const step: Step = (kind, subject, evidence, timing, value, limit, message) => {
     const key = `${kind}/${subject}`;
-    const condition = state.conditions[key] ?? startCondition();
+    const known = state.conditions[key];
+    const condition = known ?? startCondition();
+    // Only the delays: what has them may be a whole view.
+    const { on_delay_s, off_delay_s } = timing;
     const transition = stepEvidence(condition, evidence, {
       time_ms: input.time_ms,
       gap_s: GAP_SCANS * unit.scan_period_s,
-      ...timing,
+      on_delay_s,
+      off_delay_s,
     });
-    if (isIdle(condition)) delete state.conditions[key];
-    else state.conditions[key] = condition;
+    if (!isIdle(condition)) state.conditions[key] = condition;
+    else if (known !== undefined) delete state.conditions[key];
     if (transition === null) return;
     const parts = { unit: unit.id, kind, subject, transition, time_ms: input.time_ms };
     const said = message(transition === 'raised');
@@ -145,6 +149,25 @@ function watchAge(unit: UnitDefinition, state: WatchState, input: WatchInput, st
   );
 }
 
+interface SensorKey {
+  readonly id: string;
+  /** Of its condition. */
+  readonly key: string;
+}
+
+const sensorKeys = new WeakMap<StoreDefinition, readonly SensorKey[]>();
+
+/** The thermocouples of a store, made once: a text for each of them costs more than looking it up. */
+function sensorsOf(store: StoreDefinition): readonly SensorKey[] {
+  const known = sensorKeys.get(store);
+  if (known !== undefined) return known;
+  const made = store.strings.flatMap((string) =>
+    string.thermocouples.map(({ id }) => ({ id, key: `sensor_rejected/${id}` })),
+  );
+  sensorKeys.set(store, made);
+  return made;
+}
+
 /**
  * One event per sensor; but where many of a store are rejected at once there is one common cause, and
  * one event for the store instead of a flood (ISA-18.2): those not told of yet wait until it is over. Those
@@ -158,18 +181,18 @@ function watchSensors(
   rule: UnitDefinition['watch']['sensor_rejected'],
   step: Step,
 ): void {
-  const ids = store.strings.flatMap((string) => string.thermocouples.map(({ id }) => id));
+  const sensors = sensorsOf(store);
   const { rejected } = estimate.sensors;
-  const many = Math.max(MANY_LEAST, MANY_SHARE * ids.length);
+  const many = Math.max(MANY_LEAST, MANY_SHARE * sensors.length);
   const flood = rejected.length >= many;
   const count = rejected.length;
   step('sensor_rejected', store.id, flood ? 'active' : 'clear', rule, count, many, (raised) =>
     raised
-      ? say.manySensorsRaised(store.id, count, ids.length)
-      : say.manySensorsReturned(store.id, count, ids.length),
+      ? say.manySensorsRaised(store.id, count, sensors.length)
+      : say.manySensorsReturned(store.id, count, sensors.length),
   );
-  for (const id of ids) {
-    const known = state.conditions[`sensor_rejected/${id}`];
+  for (const { id, key } of sensors) {
+    const known = state.conditions[key];
     const sensor = rejected.find((one) => one.id === id);
     if (sensor === undefined && known === undefined) continue;
     const inGas = sensor !== undefined && hangsInGas(store, id, sensor.verdict, views);
