@@ -174,7 +174,7 @@ export function centralHours(
   power_W: number,
 ): { hours: number; ends_by: EndCause } {
   const roller = createRoller(input, power_W);
-  const result = roller.best();
+  const result = roller.end();
   return {
     hours: Math.min(result.end_s, roller.most_s) / 3600,
     ends_by: result.ends_by,

@@ -63,6 +63,8 @@ export interface Roller {
   rollFine(change?: Perturbation): RolloutResult;
   /** The best there is, with the layers at the wall on half cells: see `refined`. */
   best(): RolloutResult;
+  /** The same, no further than to its end. */
+  end(): RolloutResult;
   /** The same for another plant than the estimate. */
   member(member: Member): RolloutResult;
 }
@@ -110,9 +112,10 @@ export function createRoller(input: HoursInput, power_W: number): Roller {
     on: readonly (readonly BedWork[])[],
     change: Perturbation,
     until_s = common.most_s,
+    endOnly = false,
   ): RolloutResult => {
     const workFactor = Math.exp(log + (change.work ?? 0));
-    return rollOut({ ...common, step_s, stores: of, workFactor, most_s: until_s }, on);
+    return rollOut({ ...common, step_s, stores: of, workFactor, most_s: until_s, endOnly }, on);
   };
   const fineWorks = worksOf(2);
   return {
@@ -123,6 +126,7 @@ export function createRoller(input: HoursInput, power_W: number): Roller {
     rollFine: (change = {}) =>
       go(changed(bare, change).map(refined), FINE_STEP_S, fineWorks, change),
     best: () => go(whole.map(refined), FINE_STEP_S, fineWorks, {}),
+    end: () => go(whole.map(refined), FINE_STEP_S, fineWorks, {}, common.most_s, true),
     member: (member) => {
       const stores = whole.map((store, s) =>
         shifted(

@@ -43,6 +43,8 @@ export interface RolloutInput {
   /** Step once the lids are swept [s]. */
   readonly step_s: number;
   readonly most_s: number;
+  /** Only the end and its cause are wanted: the times of other rules, all later, are left open. */
+  readonly endOnly?: boolean;
 }
 
 /** The rules that may end a discharge, in the order of `RolloutResult.times_s`. */
@@ -181,7 +183,10 @@ export function rollOut(
         : at - ((at - (beforeAt[r] as number)) * margin) / (margin - last);
       first = Math.min(first, times[r] as number);
     });
-    if (swept && (!Number.isFinite(flow) || t > first * (1 + FOLLOW) || first === 0)) break;
+    const enough = first * (1 + FOLLOW);
+    // What holds now counts as broken half a step before it at the earliest (see `excessLag`).
+    const until = input.endOnly ? Math.min(enough, first + step_s) : enough;
+    if (swept && (!Number.isFinite(flow) || t > until || first === 0)) break;
     // Past its first broken rule the flow may run away; the rest only serves the other rules' times.
     const ahead = flow + (flow - flowBefore) * (0.5 + mean / step_s);
     const middle = ahead > 0 ? ahead : flow;

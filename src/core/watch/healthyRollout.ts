@@ -105,6 +105,7 @@ export function healthyHours(
       ambient_K: input.ambient_K,
       step_s: STEP_S,
       most_s,
+      endOnly: true,
     },
     works,
   );

@@ -1,6 +1,7 @@
 import fc from 'fast-check';
 import { describe, expect, it } from 'vitest';
 import { centralHours, computeHours } from '../../../src/core/dispatch/hours.js';
+import { createRoller } from '../../../src/core/dispatch/roller.js';
 import { END_CAUSES } from '../../../src/core/estimate.js';
 import { coldStore, hotStore, stringOf, unitOf } from '../track/plants.js';
 import { inputOf, watchedUnit } from './fullUnit.js';
@@ -33,6 +34,17 @@ describe('hours at a power', () => {
         },
       ),
       { numRuns: 25 },
+    );
+  });
+
+  it('end where a rollout that follows all rules ends, and by the same', () => {
+    fc.assert(
+      fc.property(share, share, power, (hot, cold, power_W) => {
+        const roller = createRoller(inputOf(unit, watchedUnit(unit, { hot, cold }, 1)), power_W);
+        const { end_s, ends_by } = roller.best();
+        expect(roller.end()).toMatchObject({ end_s, ends_by });
+      }),
+      { numRuns: 60 },
     );
   });
 
