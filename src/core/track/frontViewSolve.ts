@@ -157,7 +157,8 @@ function descend(
     // A step of more than a factor e in width, or 1 in skew, leaves the region where the tangent
     // means anything.
     const shorten = Math.min(1, 1 / Math.max(1e-300, Math.abs(move[1]), Math.abs(move[4])));
-    const next = at.map((value, k) => value + shorten * move[k]!) as Shape;
+    const next: Shape = [...at];
+    for (let k = 0; k < N; k++) next[k]! += shorten * move[k]!;
     normalEquations(fit, next, trial);
     const gain = system.squares - trial.squares;
     if (gain >= 0) {

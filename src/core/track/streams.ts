@@ -42,11 +42,11 @@ export function streamsOf(model: StoreModel, state: StoreState): Stream[] {
   const last = wall.layers.length - 1;
   wall.layers.forEach((layer, i) => {
     streams.push({
-      ...beside,
       share: layer.share,
       enthalpy: enthalpy[i] as Float64Array,
       outlet_K: outlet_K[i] as number,
       flowFactor: beside.flowFactor * layer.flowFactor,
+      heatTransferFactor: beside.heatTransferFactor,
       // Lost through the steel: see exchangeAtWall.
       wallLoss_W_m3K: 0,
       ...(i === last ? { wall: { model: wall, steel_K } } : {}),

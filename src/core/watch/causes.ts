@@ -35,6 +35,12 @@ const STRAY = 0.02;
 /** Explanations less probable than this are not told. */
 const LEAST = 0.05;
 
+/** By the first of the views: those of a scan are mostly the very same as of the scan before. */
+const explained = new WeakMap<
+  IndicatorView,
+  { readonly views: readonly IndicatorView[]; readonly causes: readonly CauseView[] }
+>();
+
 /**
  * Explanations of what is degraded: Bayes' rule over the causes of `CAUSES`, one at a time, on the
  * indicators of a store, those of the other stores and of the unit, taken as independent given the
@@ -44,11 +50,25 @@ const LEAST = 0.05;
  * What is undetermined counts nothing. Two faults at once are each held against all that is seen: the
  * stronger wins.
  *
+ * Worked out anew only where a view has changed.
+ *
  * @param views of one unit, all scans' newest
  * @returns of each store with something degraded, then of the unit, most probable first; causes of
  *   the unit once, with the store where they are most probable as reason
  */
-export function causesOf(views: readonly IndicatorView[]): CauseView[] {
+export function causesOf(views: readonly IndicatorView[]): readonly CauseView[] {
+  const [first] = views;
+  if (first === undefined) return [];
+  const known = explained.get(first);
+  const same =
+    known?.views.length === views.length && known.views.every((view, i) => view === views[i]);
+  if (known !== undefined && same) return known.causes;
+  const causes = causesFor(views);
+  explained.set(first, { views, causes });
+  return causes;
+}
+
+function causesFor(views: readonly IndicatorView[]): CauseView[] {
   const degraded = views.filter(({ state }) => state === 'degraded');
   if (degraded.length === 0) return [];
   const stores = [
