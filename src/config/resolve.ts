@@ -33,6 +33,7 @@ export function resolveSite(site: SiteBlock, baseFolder: string, secrets: Secret
       embedded_port: mqtt.embedded_port,
       embedded_tls: secrets.embedded_tls,
       embedded_packet_max_bytes: mqtt.embedded_packet_max_kB * 1000,
+      embedded_memory_max_bytes: mqtt.embedded_memory_max_MB * 1e6,
       client_id: mqtt.client_id,
       username: mqtt.username ?? null,
       password: secrets.mqtt,

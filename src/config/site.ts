@@ -58,6 +58,8 @@ export interface MqttConfig {
   readonly embedded_tls?: ServerTls | null;
   /** Greatest packet that its own broker takes, with its header; absent: what MQTT allows. */
   readonly embedded_packet_max_bytes?: number;
+  /** Most that it keeps in memory, retained or waiting for clients; absent: 64 MB. */
+  readonly embedded_memory_max_bytes?: number;
   readonly client_id: string;
   readonly username: string | null;
   readonly password: string | null;

@@ -71,6 +71,13 @@ const OWN_COUNTS = [
   'broker_packets_refused',
   'broker_connections_refused',
   'broker_handshakes_refused',
+  /** There too: clients cut off as slow, and what is not kept for clients as too much is kept. */
+  'broker_slow_refused',
+  'broker_sessions_refused',
+  'broker_retained_refused',
+  'broker_queued_refused',
+  /** Times that a publisher had to wait, as rockhour itself was behind. */
+  'broker_publishers_held',
   /** Journal entries of a unit or channel that is no longer configured. */
   'unconfigured',
   'questions',

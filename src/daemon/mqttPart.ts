@@ -233,10 +233,16 @@ export class MqttPart {
   private brokerOptions(): BrokerOptions {
     const { config, log } = this.options;
     const { embedded_tls: tls = null, embedded_packet_max_bytes: most } = config;
+    const { embedded_memory_max_bytes: memory } = config;
     return {
       tls,
       ...(most === undefined ? {} : { packet_most_bytes: most }),
+      ...(memory === undefined ? {} : { memory_most_bytes: memory }),
       refused: (what, text) => this.refusedSomebody(what, text),
+      held: (text) => {
+        this.options.counters.add('broker_publishers_held');
+        this.options.notices.warn('broker_publishers_held', `at its own broker ${text}`);
+      },
       info: (text) => log.info(text),
       error: (text) => log.error(text),
     };

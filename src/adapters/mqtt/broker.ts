@@ -1,24 +1,31 @@
 import { createServer, type Server, type Socket } from 'node:net';
 import { Duplex } from 'node:stream';
 import { createServer as createSecureServer, type Server as SecureServer } from 'node:tls';
-import { Aedes } from 'aedes';
+import type { Client } from 'aedes';
 import { CertificateWatch } from '../../access/certificateWatch.js';
 import { Places } from '../../access/places.js';
 import { LEAST_TLS } from '../../access/tls.js';
 import type { ServerTls } from '../../config/site.js';
 import { RockhourError, reasonOf } from '../../errors.js';
+import { type Bounded, BoundedBroker } from './boundedBroker.js';
 import { Door, type DoorOptions } from './door.js';
 import { connectedPair } from './inside.js';
 import { PacketSizes } from './packetSizes.js';
+import { SLOW_BOUNDS, type SlowBounds, SlowClients } from './slowClients.js';
 
 export interface BrokerOptions {
   /** Absent or null: plain TCP. */
   readonly tls?: ServerTls | null;
   /** Greatest packet with its header [bytes]; absent: as large as MQTT has them. */
   readonly packet_most_bytes?: number;
+  /** Most that is kept for clients, retained or waiting [bytes]. */
+  readonly memory_most_bytes?: number;
+  readonly slow?: Partial<SlowBounds>;
   readonly certificate_look_ms?: number;
-  /** A client was cut off, or not let in. */
-  refused?(what: 'packets' | 'connections' | 'handshakes', text: string): void;
+  /** A client was cut off, or not let in, or something is not kept for it. */
+  refused?(what: 'packets' | 'connections' | 'handshakes' | 'slow' | Bounded, text: string): void;
+  /** Publishers have to wait. */
+  held?(text: string): void;
   info?(text: string): void;
   error?(text: string): void;
 }
@@ -32,6 +39,9 @@ const MOST_BEFORE_LOGIN = 65_536;
 /** A client says who it is by then, and has finished the handshake of TLS [ms]. */
 const LOGIN_MS = 10_000;
 const CERTIFICATE_LOOK_MS = 30_000;
+const MEMORY_BYTES = 64_000_000;
+/** A connection on which nothing comes is asked for whether it still is one [ms]. */
+const ALIVE_MS = 60_000;
 /** MQTT 3.1.1, 2.2.3, with its header. */
 const MOST_OF_MQTT = 268_435_460;
 
@@ -41,7 +51,8 @@ const MOST_OF_MQTT = 268_435_460;
  * can publish to this machine; what it holds is gone when the process ends.
  */
 export class EmbeddedBroker {
-  private aedes: Aedes | null = null;
+  private aedes: BoundedBroker | null = null;
+  private slow: SlowClients | null = null;
   private server: Server | SecureServer | null = null;
   private readonly sockets = new Set<Socket>();
   private watch: CertificateWatch | null = null;
@@ -75,7 +86,7 @@ export class EmbeddedBroker {
     const { aedes } = this;
     if (aedes === null) return new Duplex({ read: () => undefined }).destroy();
     const [far, near] = connectedPair();
-    aedes.handle(near);
+    aedes.take(near, true);
     return far;
   };
 
@@ -83,13 +94,31 @@ export class EmbeddedBroker {
   async start(): Promise<void> {
     if (this.server) return;
     const { door } = this;
-    const aedes = await Aedes.createBroker({ ...door?.rules, connectTimeout: LOGIN_MS });
+    const { memory_most_bytes = MEMORY_BYTES, refused, held } = this.options;
+    const aedes = new BoundedBroker({ connectTimeout: LOGIN_MS }, door?.rules ?? {}, {
+      memory_most_bytes,
+      refused: (what, text) => refused?.(what, text),
+      held: (text) => held?.(text),
+      turnedAway: (client) => door?.left(client),
+    });
+    await aedes.listen();
     if (door) {
       aedes.on('clientDisconnect', (client) => door.left(client));
       aedes.on('connectionError', (client) => door.left(client));
       door.start();
     }
-    const server = this.makeServer((socket) => this.take(aedes, socket));
+    const slow = new SlowClients(
+      { ...SLOW_BOUNDS, ...this.options.slow },
+      (client, socket, why) => {
+        refused?.('slow', `${this.nameOf(client)}${socket.remoteAddress}: ${why}`);
+        // What waits for it is thrown away with it.
+        socket.destroy();
+      },
+      () => aedes.isHolding,
+    );
+    this.slow = slow;
+    slow.start();
+    const server = this.makeServer((socket) => this.take(aedes, slow, socket));
     try {
       await new Promise<void>((resolve, reject) => {
         server.once('error', reject);
@@ -97,6 +126,7 @@ export class EmbeddedBroker {
       });
     } catch (thrown) {
       aedes.close();
+      slow.stop();
       door?.stop();
       throw new RockhourError(
         'PORT_IN_USE',
@@ -120,6 +150,7 @@ export class EmbeddedBroker {
     this.aedes = null;
     this.server = null;
     this.watch?.stop();
+    this.slow?.stop();
     this.door?.stop();
     // The broker first: the server waits for connections that only the broker ends.
     if (aedes) await new Promise<void>((resolve) => aedes.close(resolve));
@@ -140,6 +171,7 @@ export class EmbeddedBroker {
         this.options.refused?.('connections', `${remoteAddress}: it has ${MOST_EACH} already`);
         return;
       }
+      socket.setKeepAlive(true, ALIVE_MS);
       this.sockets.add(socket);
       socket.once('close', () => this.sockets.delete(socket));
     });
@@ -175,26 +207,28 @@ export class EmbeddedBroker {
   }
 
   /** Hands a connection to the broker, cut off at the first packet that is too great. */
-  private take(aedes: Aedes, socket: Socket): void {
+  private take(aedes: BoundedBroker, slow: SlowClients, socket: Socket): void {
     if (socket.destroyed) return;
-    const client = aedes.handle(socket);
+    const client = aedes.take(socket, false);
     const sizes = new PacketSizes();
+    slow.watch(client, socket, sizes);
     const { packet_most_bytes = MOST_OF_MQTT, refused } = this.options;
     // While the broker reads: the packet has not been handed to its parser yet.
     socket.on('data', (bytes: Buffer) => {
-      const most = client.connected
+      const most = aedes.isIn(client)
         ? packet_most_bytes
         : Math.min(packet_most_bytes, MOST_BEFORE_LOGIN);
       const size = client.closed ? 0 : sizes.see(bytes, most);
       if (size === 0) return;
-      const who = this.door?.nameOf(client) ?? client.id;
-      const from = who === '' ? '' : `${who} at `;
-      refused?.(
-        'packets',
-        `a packet of ${size} bytes from ${from}${socket.remoteAddress}, more than ${most}`,
-      );
+      const from = `${this.nameOf(client)}${socket.remoteAddress}`;
+      refused?.('packets', `a packet of ${size} bytes from ${from}, more than ${most}`);
       client.close();
     });
+  }
+
+  private nameOf(client: Client): string {
+    const who = this.door?.nameOf(client) ?? client.id ?? '';
+    return who === '' ? '' : `${who} at `;
   }
 }
 

@@ -11,6 +11,13 @@ export class PacketSizes {
   private isInLength = false;
   private length = 0;
   private shift = 0;
+  /** Packets that have begun. */
+  begun = 0;
+
+  /** A packet has begun whose end has not come. */
+  get isWithin(): boolean {
+    return this.isInLength || this.left > 0;
+  }
 
   /**
    * @param most greatest packet, with its header [bytes]
@@ -29,6 +36,7 @@ export class PacketSizes {
       if (!this.isInLength) {
         // The first byte says what it is; the length follows.
         [this.isInLength, this.length, this.shift] = [true, 0, 0];
+        this.begun++;
         continue;
       }
       this.length += (byte & 0x7f) * 2 ** (7 * this.shift++);

@@ -67,6 +67,12 @@ export const mqttSchema = z.strictObject({
     'A client of its own broker that sends a greater packet is cut off.',
     1200,
   ).default(1200),
+  embedded_memory_max_MB: key(
+    z.int().min(8).max(4000),
+    'MB',
+    'Most that its own broker keeps: half waits for rockhour, a quarter for others, a quarter is retained.',
+    64,
+  ).default(64),
   client_id: key(z.string().min(1).max(128), '-', 'Client id at the broker.', 'rockhour').default(
     'rockhour',
   ),

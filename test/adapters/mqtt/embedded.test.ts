@@ -2,19 +2,17 @@ import { copyFileSync, readFileSync } from 'node:fs';
 import { connect as connectPlainly, type Socket } from 'node:net';
 import { join } from 'node:path';
 import { connect as connectSecurely } from 'node:tls';
-import { connect, connectAsync, type IClientOptions, type MqttClient } from 'mqtt';
+import { connect, type IClientOptions } from 'mqtt';
 import { afterEach, describe, expect, it } from 'vitest';
-import { type BrokerOptions, EmbeddedBroker } from '../../../src/adapters/mqtt/broker.js';
-import { MqttLink } from '../../../src/adapters/mqtt/link.js';
+import type { BrokerOptions } from '../../../src/adapters/mqtt/broker.js';
 import { PacketSizes } from '../../../src/adapters/mqtt/packetSizes.js';
-import { TopicSet } from '../../../src/adapters/mqtt/topicRules.js';
 import { holders } from '../../access/holders.js';
 import { makeCertificates } from '../../support/certificates.js';
 import { temporaryFolder } from '../../support/folders.js';
 import { mulberry } from '../../support/random.js';
 import { requireProgram } from '../../support/requirements.js';
+import { READING, startOwnBroker } from './ownBroker.js';
 
-const READING = 'plant/unit1/hot/A';
 const { access, tokens } = holders();
 const feed: IClientOptions = { username: 'a_feed', password: tokens.feed };
 const ends: (() => unknown)[] = [];
@@ -22,45 +20,8 @@ afterEach(async () => {
   for (const end of ends.splice(0).reverse()) await end();
 });
 
-/** A broker with tokens, what it refused, and what rockhour's own link got. */
-async function start(options: BrokerOptions = {}) {
-  const refused: string[] = [];
-  const came: string[] = [];
-  const broker = new EmbeddedBroker(
-    '127.0.0.1',
-    0,
-    {
-      ...{ access, own_ids: ['rockhour'], out_prefix: 'rockhour', commands: [] },
-      readings: new TopicSet([READING]),
-      refused: (what, text) => refused.push(`${what}: ${text}`),
-    },
-    { ...options, refused: (what, text) => refused.push(`${what}: ${text}`) },
-  );
-  await broker.start();
-  ends.push(() => broker.stop());
-  const up = new Promise<void>((resolve) => {
-    const link = new MqttLink({
-      ...{ client_id: 'rockhour', ...broker.login!, protocol: 4, qos: 1, topics: [READING] },
-      ...{ url: () => broker.url, inside: broker.inside },
-      will: { topic: 'rockhour/heartbeat', payload: 'offline' },
-      receive: ({ payload, acknowledge }) => {
-        came.push(payload.length > 20 ? `${payload.length} bytes` : payload.toString());
-        acknowledge?.();
-      },
-      ...{ up: resolve, down: () => undefined, refused: () => undefined },
-    });
-    ends.push(() => link.stop());
-    link.start();
-  });
-  await up;
-  const open = async (more: IClientOptions = {}): Promise<MqttClient> => {
-    const client = await connectAsync(broker.url, { reconnectPeriod: 0, ...more });
-    client.on('error', () => undefined);
-    ends.push(() => client.endAsync(true));
-    return client;
-  };
-  return { broker, port: Number(new URL(broker.url).port), refused, came, open };
-}
+const start = (options: BrokerOptions = {}) =>
+  startOwnBroker((end) => ends.push(end), { access, ...options });
 
 describe('sizes of packets', () => {
   it('are told of the first that is too great, wherever the bytes were cut', () => {
