@@ -1,4 +1,4 @@
-import { renameSync, writeFileSync } from 'node:fs';
+import { renameSync, rmSync, writeFileSync } from 'node:fs';
 import type { Command } from 'commander';
 import { copyStore } from '../adapters/history/copyStore.js';
 import { readSource, siteOf } from '../config/load.js';
@@ -13,10 +13,12 @@ interface BackupOptions {
 }
 
 /** Whole or not at all: a file of before stays until the new one is there. */
-function writeWhole(file: string, content: Uint8Array): void {
+export function writeWhole(file: string, content: Uint8Array): void {
   const half = `${file}.part`;
   try {
-    writeFileSync(half, content, { mode: 0o600 });
+    // Made anew: a link that somebody put there is not followed.
+    rmSync(half, { force: true });
+    writeFileSync(half, content, { mode: 0o600, flag: 'wx' });
     renameSync(half, file);
   } catch (thrown) {
     throw new RockhourError('OUTPUT_UNWRITABLE', `cannot write ${file}: ${fileReasonOf(thrown)}`, {

@@ -1,4 +1,4 @@
-import { existsSync, renameSync, rmSync } from 'node:fs';
+import { existsSync, renameSync, rmSync, writeFileSync } from 'node:fs';
 import { join } from 'node:path';
 import SQLite from 'better-sqlite3';
 import { RockhourError } from '../../errors.js';
@@ -39,7 +39,9 @@ async function copyOne(from: string, to: string, out: string) {
   try {
     source = new SQLite(from, { readonly: true, fileMustExist: true, timeout: 10_000 });
     makeFolder(out);
+    // Made anew: a link that somebody put there is not followed.
     rmSync(half, { force: true });
+    writeFileSync(half, '', { mode: 0o600, flag: 'wx' });
     // All at once, from one moment: with pages in turn every write of the daemon begins it again.
     await source.backup(half, { progress: () => 0x7fffffff });
     copy = new SQLite(half);

@@ -2,6 +2,7 @@ import { join } from 'node:path';
 import SQLite from 'better-sqlite3';
 import { RockhourError } from '../../errors.js';
 import { type Database, makeFolder, storeFailure } from './database.js';
+import { trustFolder } from './folderTrust.js';
 
 /**
  * Keeps a second rockhour out of a folder: two would write the same journal twice. Held by a lock
@@ -18,6 +19,7 @@ export class FolderLock {
     let database: Database | null = null;
     try {
       makeFolder(this.folder);
+      trustFolder(this.folder);
       database = new SQLite(join(this.folder, 'lock.sqlite'), { timeout: 0 });
       database.exec('BEGIN EXCLUSIVE');
     } catch (thrown) {
