@@ -165,6 +165,7 @@ export async function createHttpApp(
     entrance,
     faultCounts: new FaultCounts(),
     connectionsRefused: () => servers?.refused ?? 0,
+    unreadEnded: () => servers?.unreadEnded ?? 0,
   };
 
   const onError = errorHandler(context.faultCounts);

@@ -6,6 +6,7 @@ import { Places } from '../../access/places.js';
 import { LEAST_TLS } from '../../access/tls.js';
 import type { ServerTls } from '../../config/site.js';
 import type { HttpTuning } from './tuning.js';
+import { Unread } from './unread.js';
 
 /** Request line and headers together [bytes]; Node answers more with 431. */
 const MOST_HEADER_BYTES = 16 * 1024;
@@ -15,6 +16,8 @@ export class Servers {
   private readonly secure: SecureServer[] = [];
   private readonly watch: CertificateWatch | null;
   private readonly places: Places;
+  private readonly unread: Unread;
+  private looking: NodeJS.Timeout | null = null;
 
   constructor(
     private readonly tuning: HttpTuning,
@@ -25,6 +28,7 @@ export class Servers {
     },
   ) {
     this.places = new Places(tuning.connections_each_most);
+    this.unread = new Unread(tuning);
     this.watch =
       tls &&
       new CertificateWatch({
@@ -39,7 +43,10 @@ export class Servers {
   }
 
   /** Slow senders of headers and bodies are ended, idle connections too; the number is bounded. */
-  readonly make = (handler: RequestListener): Server => {
+  readonly make = (handle: RequestListener): Server => {
+    const handler: RequestListener = (question, answer) => {
+      if (this.unread.take(question, answer)) handle(question, answer);
+    };
     const { headers_ms, request_ms, idle_ms, look_ms, connections_most } = this.tuning;
     const limits = {
       headersTimeout: headers_ms,
@@ -72,12 +79,20 @@ export class Servers {
     return this.places.refused;
   }
 
+  /** Connections that were ended as their answers were not read. */
+  get unreadEnded(): number {
+    return this.unread.ended;
+  }
+
   start(): void {
     this.watch?.start();
+    this.looking ??= setInterval(() => this.unread.look(), this.tuning.look_ms).unref();
   }
 
   stop(): void {
     this.watch?.stop();
+    if (this.looking !== null) clearInterval(this.looking);
+    this.looking = null;
   }
 }
 

@@ -31,6 +31,8 @@ export interface RouteContext {
   readonly faultCounts: FaultCounts;
   /** Connections that were ended at once, as there were too many. */
   connectionsRefused(): number;
+  /** Connections ended as answers were not read. */
+  unreadEnded(): number;
 }
 
 /** One group of routes, declared within the path prefix. */

@@ -27,6 +27,11 @@ export interface HttpTuning {
   readonly request_ms: number;
   /** A connection on which nothing moves is ended [ms]: longer than the longest answer takes. */
   readonly idle_ms: number;
+  /** Questions of one connection waiting for the end of their answers; one more ends it. */
+  readonly waiting_each_most: number;
+  /** Of answers that are not taken all together [bytes]; how long nothing may be taken of one [ms]. */
+  readonly unread_most_bytes: number;
+  readonly unread_ms: number;
   /** How often slow connections are looked for, and new files of the certificate [ms]. */
   readonly look_ms: number;
   readonly certificate_look_ms: number;
@@ -48,6 +53,9 @@ export const DEFAULT_TUNING: HttpTuning = {
   headers_ms: 10_000,
   request_ms: 30_000,
   idle_ms: 180_000,
+  waiting_each_most: 4,
+  unread_most_bytes: 32_000_000,
+  unread_ms: 30_000,
   look_ms: 5_000,
   certificate_look_ms: 30_000,
 };

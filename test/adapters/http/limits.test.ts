@@ -82,6 +82,45 @@ describe('the server ends', () => {
     expect(counters.http_connections_refused).toBeGreaterThan(0);
   });
 
+  it('who asks on without reading the answers, or reads nothing of one for too long, and counts them', async () => {
+    const question = 'GET /api/openapi.json HTTP/1.1\r\nHost: 127.0.0.1\r\n\r\n';
+    const deaf = (port: number, questions: number) => {
+      const socket = connect(port, '127.0.0.1', () => socket.write(question.repeat(questions)));
+      socket.on('error', () => undefined);
+      socket.pause();
+      return socket;
+    };
+    const ended = async (url: string) =>
+      (await (await fetch(`${url}api/counters`)).json()).counters.http_unread_ended as number;
+    // All five are in one piece, and Node would answer them at once.
+    const { port, url } = await listen();
+    const five = await exchange(port, question.repeat(5));
+    expect(five.match(/HTTP\/1\.1 200 /g) ?? []).not.toHaveLength(5);
+    expect(await ended(url)).toBe(1);
+    const four = question.repeat(3) + question.replace('\r\n\r\n', '\r\nConnection: close\r\n\r\n');
+    expect((await exchange(port, four)).match(/HTTP\/1\.1 200 /g)).toHaveLength(4);
+
+    // The system takes some MB for a client that does not read; of ten times four more than that waits.
+    const narrow = await listen({ unread_most_bytes: 400_000 });
+    const sockets: ReturnType<typeof deaf>[] = [];
+    for (let n = 0; n < 60 && (await ended(narrow.url)) === 0; n++) {
+      for (let more = 0; more < 4; more++) sockets.push(deaf(narrow.port, 4));
+      await new Promise((resolve) => setTimeout(resolve, 20));
+    }
+    expect(await ended(narrow.url)).toBeGreaterThan(0);
+    for (const socket of sockets) socket.destroy();
+
+    const patient = await listen({ unread_ms: 100, look_ms: 20, waiting_each_most: 1e6 });
+    const slow = deaf(patient.port, 4);
+    for (let n = 0; n < 200 && (await ended(patient.url)) === 0; n++) {
+      // Until the system takes no more for it.
+      slow.write(question);
+      await new Promise((resolve) => setTimeout(resolve, 20));
+    }
+    expect(await ended(patient.url)).toBeGreaterThan(0);
+    slow.destroy();
+  }, 30_000);
+
   it('what is too long in its head, or no HTTP, in the form of all faults', async () => {
     const { port } = await listen();
     const ask = (path: string, header = '') =>

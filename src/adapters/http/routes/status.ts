@@ -12,6 +12,7 @@ function ownCounters(context: RouteContext): Record<string, number> {
     http_non_finite_numbers: json.nonFinite,
     http_slow_streams_ended: stream.slowEnded,
     http_connections_refused: context.connectionsRefused(),
+    http_unread_ended: context.unreadEnded(),
   };
 }
 
