@@ -1,3 +1,4 @@
+import { spreadsheetField } from '../../core/report/spreadsheet.js';
 import type { HistoryPoint } from './service.js';
 
 /** What an answer about what lies ahead stands on: leading columns, the same in every row. */
@@ -18,20 +19,15 @@ export function standOf({ unit, time, age_s, valid_until, stale, quality }: Stan
   return { unit, time, age_s, valid_until, stale: String(stale), quality };
 }
 
-/** RFC 4180: header row, CRLF, quotes where needed; null is an empty field. */
+/** RFC 4180: header row, CRLF, quotes where needed; null is an empty field, no text is a formula. */
 export function toCsv(
   columns: readonly string[],
   rows: readonly Readonly<Record<string, number | string | null>>[],
 ): string {
-  const lines = [columns.map(field).join(',')];
-  for (const row of rows) lines.push(columns.map((column) => field(row[column] ?? null)).join(','));
+  const lines = [columns.map(spreadsheetField).join(',')];
+  for (const row of rows)
+    lines.push(columns.map((column) => spreadsheetField(row[column])).join(','));
   return `${lines.join('\r\n')}\r\n`;
-}
-
-function field(value: string | number | null): string {
-  if (value === null) return '';
-  const text = String(value);
-  return /[",\r\n]/.test(text) ? `"${text.replaceAll('"', '""')}"` : text;
 }
 
 /** CSV where the query says so, or else the Accept header names it and not JSON. */

@@ -1,5 +1,6 @@
 import { findingsOf } from '../../core/report/findings.js';
 import type { ReportData } from '../../core/report/reportData.js';
+import { spreadsheetField } from '../../core/report/spreadsheet.js';
 import { hoursOf } from '../../core/report/totals.js';
 
 /** Tables of a report that can be had as CSV. */
@@ -14,7 +15,7 @@ type Field = string | number | null | undefined;
  */
 export function reportCsv(data: ReportData, table: ReportTable = 'runs'): string {
   return TABLES[table](data)
-    .map((row) => row.map(field).join(','))
+    .map((row) => row.map(spreadsheetField).join(','))
     .join('\r\n')
     .concat('\r\n');
 }
@@ -97,11 +98,3 @@ const HEAD = [
   ...['heat_transfer_factor', 'heat_transfer_factor_sigma', 'flow_factors'],
   ...['thermocouples_rejected', 'raised'],
 ];
-
-function field(value: Field): string {
-  if (value === null || value === undefined) return '';
-  const text = String(value);
-  // A spreadsheet would take a text that begins like a formula for one.
-  const safe = typeof value === 'string' && /^[=+\-@\t\r]/.test(text) ? `'${text}` : text;
-  return /[",\r\n]/.test(safe) ? `"${safe.replaceAll('"', '""')}"` : safe;
-}

@@ -1,5 +1,7 @@
 import { useState } from 'preact/hooks';
 
+export { csvOf, tabsOf } from '../lib/cells.js';
+
 /** Gives a text to the browser as a file. */
 export function saveText(name: string, text: string, type = 'text/csv;charset=utf-8'): void {
   const url = URL.createObjectURL(new Blob([text], { type }));
@@ -10,26 +12,6 @@ export function saveText(name: string, text: string, type = 'text/csv;charset=ut
   // Not at once: the browser has to have begun to read it.
   window.setTimeout(() => URL.revokeObjectURL(url), 10_000);
 }
-
-type Cell = string | number | boolean | null | undefined;
-
-const plain = (value: Cell): string =>
-  value === null || value === undefined
-    ? ''
-    : typeof value === 'number'
-      ? String(Number(value.toPrecision(9)))
-      : String(value);
-
-const quoted = (text: string): string =>
-  /[",\r\n]/.test(text) ? `"${text.replaceAll('"', '""')}"` : text;
-
-/** RFC 4180. */
-export const csvOf = (rows: readonly (readonly Cell[])[]): string =>
-  rows.map((row) => row.map((cell) => quoted(plain(cell))).join(',')).join('\r\n');
-
-/** Tabs between the fields: a spreadsheet takes it as cells. */
-export const tabsOf = (rows: readonly (readonly Cell[])[]): string =>
-  rows.map((row) => row.map(plain).join('\t')).join('\n');
 
 /** Copies a text; without the right to (plain HTTP) through a field that is selected. */
 async function copy(text: string): Promise<boolean> {
