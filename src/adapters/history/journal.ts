@@ -14,6 +14,7 @@ import {
 import { JournalSources } from './journalSources.js';
 import { JournalTail } from './journalTail.js';
 import { isDamage, moveAside, type SetAside, takeOverRows, wasOurs } from './setAside.js';
+import { commitsBehindBreak } from './walCheck.js';
 
 export type {
   JournalEntry,
@@ -76,11 +77,25 @@ export class Journal {
   /** @throws RockhourError STORE_FAILED; not where it was damaged: it is set aside then */
   start(): void {
     if (this.database) return;
+    // Before SQLite itself looks at it: it would throw the rest away.
+    const behind = commitsBehindBreak(`${this.file}-wal`);
+    // One alone a power cut leaves, of a commit that nobody was told of.
+    if (behind > 1 && wasOurs(this.file, 'entries')) {
+      const what = Number.isFinite(behind) ? `${behind} commits or more` : 'all commits';
+      this.renew(new Error(`its write-ahead log is broken: ${what} in it cannot be read`));
+      return;
+    }
     try {
       this.open(openDatabase(this.file, 'full', JOURNAL_SCHEMA));
     } catch (thrown) {
       if (!isDamage(thrown) || !wasOurs(this.file, 'entries')) throw thrown;
       this.renew(thrown);
+      return;
+    }
+    const [last, reach] = [this.last, this.reach()];
+    // The newest is never deleted. Numbers given once more would be taken for worked off.
+    if (reach > last) {
+      this.renew(new Error(`it ends with entry ${last}, where ${reach} had been worked off`));
     }
   }
 
