@@ -5,6 +5,7 @@ import { READING_FATES } from '../../src/core/scan/assemble.js';
 import { startMosquitto } from '../../test/support/services.js';
 import { ChaosDaemon } from '../chaos/daemon.js';
 import { Metrics } from '../load/metrics.js';
+import { shippedEnvironment } from '../load/shipped.js';
 import { type LoadSite, writeLoadSite } from '../load/site.js';
 import { type FuzzTopics, fuzzMessage } from './messages.js';
 import { fuzzRequest, notDocumented, send } from './requests.js';
@@ -66,7 +67,7 @@ export class FuzzGround {
     });
     await before.subscribeAsync(['fuzz/#', 'spBv1.0/#'], { qos: 1 });
     await before.endAsync();
-    const daemon = new ChaosDaemon(load.path);
+    const daemon = new ChaosDaemon(load.path, shippedEnvironment());
     await daemon.start();
     const client = await connectAsync(broker.url);
     return new FuzzGround(load, daemon, client, () => broker.stop(), folder);
