@@ -35,6 +35,17 @@ function newest(folder: string): number {
   }
 }
 
+/** How far the newest saved state has worked the journal off; 0 before the first. */
+function workedOff(folder: string): number {
+  const database = new SQLite(join(folder, 'history.sqlite'), { readonly: true });
+  try {
+    const found = database.prepare('SELECT max(journal_seq) FROM checkpoints').pluck();
+    return (found.get() as number | null) ?? 0;
+  } finally {
+    database.close();
+  }
+}
+
 function storedValues(folder: string): number[] {
   const journal = new Journal(join(folder, 'journal.sqlite'));
   journal.start();
@@ -104,6 +115,8 @@ describe.skipIf(!mosquitto)(
         await first.ready();
         const stream = setInterval(() => send(50), 10);
         await waitFor('a stream into the journal', () => newest(folder) > 5000, 30_000);
+        // Messages come first: states follow as there is time.
+        await waitFor('a saved state of it', () => workedOff(folder) > 0, 30_000);
         await first.end('SIGKILL');
         const had = newest(folder);
         clearInterval(stream);
