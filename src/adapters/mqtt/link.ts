@@ -73,15 +73,13 @@ const PUBACK_BYTES = 4;
  */
 export class MqttLink {
   private client: MqttClient | null = null;
-  /** Counts connections: an acknowledgement may only go out by the one its message came by. */
-  private connection = 0;
   private isUp = false;
   private isToldDown = false;
   /** Messages by `tell` that the broker has not acknowledged. */
   private telling = 0;
   /** Message ids to be acknowledged by the connection that they came by, in this turn of the loop. */
   private acknowledged: number[] = [];
-  private acknowledging = 0;
+  private acknowledging: Duplex | null = null;
   /** Newest payload that waits per topic while an older one is on its way. */
   private readonly waiting = new Map<string, string | null>();
 
@@ -98,7 +96,6 @@ export class MqttLink {
     client.handleMessage = (packet, done) => this.take(packet as IPublishPacket, done);
     client.on('connect', () => this.subscribe(client));
     client.on('close', () => {
-      this.connection++;
       this.isUp = false;
       this.tellDown('the connection was closed');
     });
@@ -115,7 +112,6 @@ export class MqttLink {
     if (!client) return;
     const wasUp = this.isUp;
     this.isUp = false;
-    this.connection++;
     let timer: NodeJS.Timeout | undefined;
     const inTime = new Promise<void>((resolve) => {
       timer = setTimeout(resolve, END_MS);
@@ -200,7 +196,6 @@ export class MqttLink {
   }
 
   private subscribe(client: MqttClient): void {
-    this.connection++;
     const { topics, qos } = this.options;
     const ready = () => {
       this.isUp = true;
@@ -225,7 +220,8 @@ export class MqttLink {
   }
 
   private take(packet: IPublishPacket, done: (error?: Error) => void): void {
-    const { connection } = this;
+    // Not a count made at 'connect': what a session still holds comes before MQTT.js emits that.
+    const connection = this.client?.stream;
     const { messageId, qos } = packet;
     this.options.receive({
       topic: packet.topic,
@@ -233,13 +229,15 @@ export class MqttLink {
       duplicate: packet.dup,
       retained: packet.retain,
       acknowledge:
-        qos !== 1 || messageId === undefined ? null : () => this.acknowledge(messageId, connection),
+        qos !== 1 || messageId === undefined || connection === undefined
+          ? null
+          : () => this.acknowledge(messageId, connection),
     });
     done(qos === 1 ? LATER : undefined);
   }
 
-  private acknowledge(messageId: number, connection: number): void {
-    if (connection !== this.connection) return;
+  private acknowledge(messageId: number, connection: Duplex): void {
+    if (this.client?.stream !== connection || connection.destroyed) return;
     if (this.acknowledged.length > 0 && this.acknowledging === connection) {
       this.acknowledged.push(messageId);
       return;
@@ -252,16 +250,17 @@ export class MqttLink {
   /** All of one group commit by one write: a packet written by MQTT.js each cost more than the commit. */
   private sendAcknowledged(): void {
     const ids = this.acknowledged;
+    const connection = this.acknowledging;
     this.acknowledged = [];
-    const { client } = this;
-    if (ids.length === 0) return;
-    if (this.acknowledging !== this.connection || !client?.connected) return;
+    this.acknowledging = null;
+    if (ids.length === 0 || connection === null) return;
+    if (this.client?.stream !== connection || !connection.writable) return;
     const packets = Buffer.allocUnsafe(ids.length * PUBACK_BYTES);
     ids.forEach((id, n) => {
       packets.writeUInt16BE((PUBACK << 8) | (PUBACK_BYTES - 2), n * PUBACK_BYTES);
       packets.writeUInt16BE(id, n * PUBACK_BYTES + 2);
     });
-    client.stream.write(packets);
+    connection.write(packets);
   }
 }
 

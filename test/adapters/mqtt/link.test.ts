@@ -1,3 +1,5 @@
+import { once } from 'node:events';
+import { type AddressInfo, createServer, type Socket } from 'node:net';
 import { connectAsync, type MqttClient } from 'mqtt';
 import { afterEach, describe, expect, it } from 'vitest';
 import { EmbeddedBroker } from '../../../src/adapters/mqtt/broker.js';
@@ -163,6 +165,50 @@ describe.skipIf(!mosquitto).each([4, 5] as const)(
 );
 
 describe.skipIf(!mosquitto)('the link to a broker that comes and goes', () => {
+  it('acknowledges what a session still held, though it comes before its own messages are through', async () => {
+    const connack = [0x20, 2, 1, 0];
+    const publish = (id: number) => [0x32, 9, 0, 4, ...Buffer.from('in/a'), 0, id, id];
+    const puback = (id: number) => [0x40, 2, 0, id];
+    const sockets: Socket[] = [];
+    let said = Buffer.alloc(0);
+    const server = createServer((socket) => {
+      sockets.push(socket);
+      said = Buffer.alloc(0);
+      const isSecond = sockets.length > 1;
+      socket.on('error', () => undefined);
+      socket.once('data', () => {
+        const held = isSecond ? [...publish(1), ...publish(2)] : [];
+        socket.write(Buffer.from([...connack, ...held]));
+        socket.on('data', (bytes) => {
+          said = Buffer.concat([said, bytes]);
+        });
+      });
+      ending.push(async () => socket.destroy());
+    });
+    server.listen(0, '127.0.0.1');
+    await once(server, 'listening');
+    ending.push(async () => server.close());
+    const { port } = server.address() as AddressInfo;
+    const { link, came, ...harness } = startLink(`mqtt://127.0.0.1:${port}`, { topics: [] });
+    await waitFor('the link', () => link.connected);
+    link.publish('out/state', 'x');
+    await waitFor('its message', () => said.includes('out/state'));
+    // Gone before it has acknowledged that: MQTT.js sends it again, and is not connected until then.
+    sockets[0]!.destroy();
+    await waitFor('what was held', () => came.length === 2);
+    came[0]!.acknowledge!();
+    await waitFor('its message again', () => said.includes('out/state'));
+    const at = said.indexOf('out/state') + 'out/state'.length;
+    expect(link.connected).toBe(false);
+    sockets[1]!.write(Buffer.from([0x40, 2, said[at]!, said[at + 1]!]));
+    await waitFor('the link again', () => link.connected);
+    came[1]!.acknowledge!();
+    for (const id of [1, 2]) {
+      await waitFor(`acknowledgement ${id}`, () => said.includes(Buffer.from(puback(id))));
+    }
+    expect(harness.downs).toHaveLength(1);
+  });
+
   it('tells an outage once, keeps trying and subscribes again', async () => {
     const port = await freePort();
     const harness = startLink(`mqtt://127.0.0.1:${port}`);
