@@ -40,6 +40,8 @@ export interface UnitAsk {
   /** Powers [W] for which hours are wanted with this scan; empty = none. See `hoursDue`. */
   readonly hours_at_W: readonly number[];
   readonly profile: boolean;
+  /** Place in [0, 1) among units that may all want a rollout at one moment; absent, 0: it is alone. */
+  readonly turn?: number;
 }
 
 /** Plain, structured-cloneable image of a UnitState (typed arrays, numbers, strings). */

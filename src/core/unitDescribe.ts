@@ -61,6 +61,8 @@ export function describe(model: UnitModel, state: UnitState, taken: Taken, ask: 
       Math.min(...taken.stores.map((store) => store.energy.soc)),
       taken.conditions,
       taken.modeChanged,
+      taken.before_ms,
+      ask.turn,
     ),
     stores,
   };

@@ -22,6 +22,8 @@ export interface Taken {
   readonly scan: Scan;
   readonly implausible: readonly number[];
   readonly conditions: Conditions;
+  /** Time of the last scan; null at the first. */
+  readonly before_ms: number | null;
   /** Time since the last scan [s]; 0 at the first. */
   readonly dt_s: number;
   readonly stores: readonly TakenStore[];
@@ -65,7 +67,8 @@ export function forget(model: UnitModel, state: UnitState): void {
 export function takeIn(model: UnitModel, state: UnitState, raw: Scan): Taken {
   const { unit } = model;
   const { scan, dropped: implausible } = withoutImplausible(model.ranges, raw);
-  const dt_s = state.time_ms === null ? 0 : (scan.time_ms - state.time_ms) / 1000;
+  const { time_ms: before_ms } = state;
+  const dt_s = before_ms === null ? 0 : (scan.time_ms - before_ms) / 1000;
   const outlets = storeOutlets(model, state, scan);
   const contradicted = state.conditions.disagreements;
   const conditions = readConditions(
@@ -151,6 +154,7 @@ export function takeIn(model: UnitModel, state: UnitState, raw: Scan): Taken {
     scan,
     implausible,
     conditions,
+    before_ms,
     dt_s,
     stores,
     thermocouples,

@@ -13,6 +13,8 @@ const MOST_WAITING = 500;
 /** Late readings that are noted together at the latest, and most kept while they cannot be. */
 const NOTE_TOGETHER = 500;
 const MOST_UNNOTED = 200_000;
+/** After a start the first states to go back to are kept in turn within this time: 20 ms each. */
+const FIRST_POINTS_MS = 60_000;
 
 export interface EnteringOptions {
   readonly history: History;
@@ -202,11 +204,14 @@ export class Entering {
 
   /**
    * Keeps the state where its stretch has none, for late readings to go back to: the first of it, of
-   * further units the first behind their phase in it.
+   * further units the first behind their phase in it; where the process starts amid a stretch, in turn
+   * within a minute.
    */
   private keepPoint(runner: UnitRunner, time_ms: number): void {
     const { unit } = runner;
     const { history, point_every_ms, reach_ms } = this.options;
+    if (!this.nextPoint.has(unit.id))
+      this.nextPoint.set(unit.id, time_ms + this.options.phase(unit.id) * FIRST_POINTS_MS);
     if (reach_ms === 0 || time_ms < (this.nextPoint.get(unit.id) ?? Number.NEGATIVE_INFINITY))
       return;
     const begin_ms = Math.floor(time_ms / point_every_ms) * point_every_ms;

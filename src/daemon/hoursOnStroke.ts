@@ -10,8 +10,11 @@ export interface HoursOnStrokeOptions {
 }
 
 /** Scans that wait for their hours at a time; beyond, hours are computed at once. */
-const MOST_HELD = 8;
-/** A scan waits at most so long for the worker, which may be busy with a question [ms]. */
+const MOST_HELD = 32;
+/**
+ * A scan waits at most so long for the worker, which may be busy with a question, and as long again for
+ * each that waits before it [ms].
+ */
 const WAIT_MS = 1000;
 
 interface Held {
@@ -44,7 +47,8 @@ export class HoursOnStroke {
   hold(runner: UnitRunner, step: RunnerStep, done: (failure?: unknown) => void): void {
     const { questions, notices } = this.options;
     const { unit } = runner;
-    const timer = setTimeout(() => this.computeNow(runner), WAIT_MS);
+    const wait_ms = WAIT_MS * (this.held.size + 1);
+    const timer = setTimeout(() => this.computeNow(runner), wait_ms);
     const own: Held = { step, timer, done };
     this.held.set(runner, own);
     questions.hours(unit, runner.snapshot(), unit.hours_at_W).then(

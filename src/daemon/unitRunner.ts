@@ -34,6 +34,14 @@ export interface RunnerStep {
   readonly hoursDue: boolean;
 }
 
+/** When a unit does what many would do in the same scan. */
+export interface RunnerPhases {
+  /** Its clock strikes for hours so much later than the even times [ms]; 0: at these. */
+  readonly hours_ms: number;
+  /** Its turn for a rollout of the state of charge, in [0, 1); 0: whenever it wants one. */
+  readonly rollout: number;
+}
+
 /** Newest of everything that a unit tells. */
 export interface RunnerView {
   estimate: Estimate | null;
@@ -85,8 +93,7 @@ export class UnitRunner {
     readonly unit: UnitDefinition,
     private readonly core: Core,
     private readonly options: AssemblerOptions,
-    /** Its clock strikes for hours so much later than the even times [ms]; 0: at these. */
-    private readonly hours_phase_ms = 0,
+    private readonly phases: RunnerPhases = { hours_ms: 0, rollout: 0 },
   ) {
     this.channelIndex = new Map(unit.channels.map((channel, i) => [channel.id, i]));
     this.finish = voltageFinish(unit);
@@ -297,7 +304,10 @@ export class UnitRunner {
     const { scan } = closed;
     if (this.awaited !== null && scan.time_ms > this.awaited.time_ms) this.takeOver(this.awaited);
     const isDue = hours !== 'none' && this.isHoursDue(scan.time_ms);
-    const ask = { hours_at_W: isDue && hours === 'now' ? this.unit.hours_at_W : [], profile: true };
+    const ask = {
+      ...{ hours_at_W: isDue && hours === 'now' ? this.unit.hours_at_W : [], profile: true },
+      turn: this.phases.rollout,
+    };
     const step = this.core.advance(this.unit, this.state, scan, ask);
     const { estimate, profile } = step;
     if (this.awaited !== null) {
@@ -329,10 +339,11 @@ export class UnitRunner {
 
   /** One that comes later than the first has its first hours from the worker, not amid the scans. */
   private isHoursDue(time_ms: number): boolean {
-    const { unit, state, hours_phase_ms } = this;
-    if (state.time_ms === null && hours_phase_ms > 0) return false;
-    const last_ms = state.time_ms === null ? null : state.time_ms - hours_phase_ms;
-    return this.core.hoursDue(unit, last_ms, time_ms - hours_phase_ms);
+    const { unit, state } = this;
+    const { hours_ms } = this.phases;
+    if (state.time_ms === null && hours_ms > 0) return false;
+    const last_ms = state.time_ms === null ? null : state.time_ms - hours_ms;
+    return this.core.hoursDue(unit, last_ms, time_ms - hours_ms);
   }
 
   private takeOver({ image, standing }: Awaited): void {

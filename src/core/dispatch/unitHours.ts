@@ -13,6 +13,8 @@ import { machineSpread, partLoadFactor } from './machineSpread.js';
 
 /** A rollout for the state of charge this often [s], at times of the unit's own: see `chargeDue`. */
 const CHARGE_EVERY_S = 600;
+/** A rollout that many units may want at one moment is made within this long, see `wait`. */
+const CHARGE_WAIT_S = 60;
 /** A jump of a store's state of charge beyond this asks for a rollout at once. */
 const CHARGE_JUMP = 0.05;
 
@@ -84,6 +86,8 @@ export interface ChargeState {
   /** Delivered since, as a share of the rated energy; time of the last scan. */
   given: number;
   seen_ms: number;
+  /** A rollout is wanted at the unit's next turn. */
+  wanted?: boolean;
 }
 
 /**
@@ -92,37 +96,51 @@ export interface ChargeState {
  * over what rated power takes; otherwise it moves with the store that holds less, by what a full unit
  * delivers. What a rollout of the ten minutes says otherwise comes in over the next ten.
  *
+ * Where many units may want a rollout at one moment, all being new or changing over together, a unit's
+ * own comes in its turn, at most a minute later; until its first, `least` stands for it.
+ *
  * @param least state of charge of the store that holds less
+ * @param before_ms time of the scan before; null: none was
+ * @param turn the unit's place in that minute, in [0, 1); 0: it is alone, and never waits
  */
 export function stateOfCharge(
   model: UnitModel,
   state: UnitState,
-  scan: Scan,
+  { time_ms: now_ms }: Scan,
   least: number,
   conditions: Conditions,
   modeChanged: boolean,
+  before_ms: number | null = null,
+  turn = 0,
 ): number {
   const { unit } = model;
   const last = state.charge;
-  const shown = last === null ? 0 : shownCharge(model, last, scan.time_ms, least, conditions);
-  const jump = last === null || modeChanged || Math.abs(least - last.least) > CHARGE_JUMP;
-  if (!jump && !chargeDue(unit.id, last.time_ms, scan.time_ms)) return shown;
+  const mayRoll =
+    turn === 0 || (before_ms !== null && strikes(turn, CHARGE_WAIT_S, before_ms, now_ms));
+  if (last === null && !mayRoll) return least;
+  const shown = last === null ? 0 : shownCharge(model, last, now_ms, least, conditions);
+  const jump =
+    last === null ||
+    modeChanged ||
+    last.wanted === true ||
+    Math.abs(least - last.least) > CHARGE_JUMP;
+  if (last !== null && jump && !mayRoll) last.wanted = true;
+  const isDue = last === null || strikes(shareOf(unit.id), CHARGE_EVERY_S, last.time_ms, now_ms);
+  if (!(jump && mayRoll) && !isDue) return shown;
   const input = hoursInput(model, state, unit.rated_power_W);
   const value = centralHours(input, unit.rated_power_W).hours / unit.rated_hours;
-  const time_ms = scan.time_ms;
   const step = jump ? 0 : shown - value;
-  state.charge = { value, time_ms, least, step, given: 0, seen_ms: time_ms };
+  state.charge = { value, time_ms: now_ms, least, step, given: 0, seen_ms: now_ms };
   return value + step;
 }
 
 /**
- * Whether the ten minutes of a unit are over. They begin at a time of its own, which follows from its
- * id: many units that started or changed over together do not roll out in the same scan ever after.
+ * Whether a span of time is over that begins at a share of it which is the unit's own: many units that
+ * started or changed over together do not roll out in the same scan ever after.
  */
-function chargeDue(id: string, last_ms: number, now_ms: number): boolean {
-  const every_ms = CHARGE_EVERY_S * 1000;
-  const phase_ms = shareOf(id) * every_ms;
-  const stroke = (time_ms: number) => Math.floor((time_ms - phase_ms) / every_ms);
+function strikes(share: number, every_s: number, last_ms: number, now_ms: number): boolean {
+  const every_ms = every_s * 1000;
+  const stroke = (time_ms: number) => Math.floor((time_ms - share * every_ms) / every_ms);
   return stroke(now_ms) !== stroke(last_ms);
 }
 
