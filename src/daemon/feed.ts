@@ -6,6 +6,8 @@ export const PAGE = 512;
 /** Entries that wait in memory: of one unit, which is then read again later, and of all. */
 const MOST_OWN = 4096;
 const MOST_HELD = 100_000;
+/** With more entries than this a unit is behind: it is flooded, or brings what was held back. */
+const IN_STEP = PAGE / 2;
 
 /** A unit and what of the journal waits for it. */
 export class UnitLine {
@@ -77,6 +79,13 @@ export class Feed {
   /** Entries that are handed out or passed over and not taken. */
   get waiting(): number {
     return this.lines.reduce((sum, { passed }) => sum + passed, this.held);
+  }
+
+  /** Whether a unit that has something to do is not far behind: it is only waiting for its turn. */
+  get isAnyInStep(): boolean {
+    return this.lines.some(
+      ({ mayStep, length, passed }) => passed === 0 && length < IN_STEP && (mayStep || length > 0),
+    );
   }
 
   /** Reads on where a unit may have something to do by it; false where nothing was read. */

@@ -18,9 +18,10 @@ const SHORTEST_MS = 2;
 const LONGEST_MS = 25;
 /**
  * Of the time that the others took since: while many messages wait at the socket they come first, since
- * a reading is safe once it is in the journal and its scan can be made later.
+ * a reading is safe once it is in the journal and its scan can be made later. Least where all units that
+ * have something to do are far behind anyway.
  */
-const SHARE = 1 / 3;
+const SHARE = { inStep: 1 / 3, behind: 1 / 12 };
 /** Entries of one unit taken in before others have their turn, where they close no scan. */
 const TURN_ENTRIES = 64;
 /** After a failure to read the journal [ms]. */
@@ -156,7 +157,8 @@ export class Pipeline {
     const { feed } = this;
     if (!feed) return;
     const now_ms = performance.now();
-    const share_ms = SHARE * (now_ms - this.sliceEnded_ms);
+    const share = feed.isAnyInStep ? SHARE.inStep : SHARE.behind;
+    const share_ms = share * (now_ms - this.sliceEnded_ms);
     const isMore = this.work(feed, now_ms + Math.min(Math.max(share_ms, SHORTEST_MS), LONGEST_MS));
     this.sliceEnded_ms = performance.now();
     if (isMore) this.kick();

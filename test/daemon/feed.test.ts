@@ -1,6 +1,6 @@
 import { expect, test } from 'vitest';
 import type { JournalEntry } from '../../src/adapters/history/journal.js';
-import { Feed, type UnitLine } from '../../src/daemon/feed.js';
+import { Feed, PAGE, type UnitLine } from '../../src/daemon/feed.js';
 import type { UnitRunner } from '../../src/daemon/unitRunner.js';
 import { mulberry } from '../support/random.js';
 
@@ -61,6 +61,28 @@ test.each([1, 2, 3, 4])(
     expect(most).toBeLessThan(6000);
   },
 );
+
+test('tells a unit that waits for its turn from units that are far behind', () => {
+  const flood = Array.from({ length: 2000 }, (_, i) => entry(i + 1, 'flooded'));
+  const { feed } = feedOf([...flood, entry(2001, 'calm')], { calm: 0, flooded: 0 });
+  const [calm, flooded] = feed.lines;
+  for (const line of feed.lines) line.mayStep = false;
+  expect(feed.isAnyInStep).toBe(false);
+  feed.fill(2000);
+  expect(flooded!.length).toBe(PAGE);
+  expect(feed.isAnyInStep).toBe(false);
+  while (calm!.length === 0 && feed.fill(2001));
+  expect(feed.isAnyInStep).toBe(true);
+  feed.take(calm!);
+  expect(feed.isAnyInStep).toBe(false);
+  // It has closed a scan that is not worked off.
+  calm!.mayStep = true;
+  expect(feed.isAnyInStep).toBe(true);
+  calm!.mayStep = false;
+  // The flood is over: what is left of it is a scan's.
+  while (feed.fill(2001) || feed.waiting > 90) feed.take(flooded!);
+  expect(feed.isAnyInStep).toBe(true);
+});
 
 test('reads past a flood for a unit that has nothing to do', () => {
   const flood = Array.from({ length: 20_000 }, (_, i) => entry(i + 1, 'flooded'));
