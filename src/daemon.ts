@@ -265,6 +265,8 @@ class RockhourDaemon implements Daemon {
       rewinder: this.rewinder,
       poll_ms,
       forwarded: () => this.database?.cursor ?? Number.POSITIVE_INFINITY,
+      newest_ms: () =>
+        Math.max(...[...this.runners.values()].map((one) => one.newest_ms ?? -Infinity)),
     });
     this.speaker = new Speaker({
       ...{ questions: this.questions, history, notices, runners: this.runners },

@@ -20,6 +20,9 @@ export interface ReloadingOptions {
   lost(thrown: unknown): void;
 }
 
+/** Nobody waits for the end of a daemon that gives way to the next; it usually takes a second [ms]. */
+const RELOAD_STOP_MS = 30_000;
+
 /**
  * A daemon whose configuration can be read anew: the one that runs saves its state and ends, the next
  * restores it and takes in what has come to the broker meanwhile, as in any restart. A configuration
@@ -83,7 +86,8 @@ export class Reloading {
       return;
     }
     log.info('SIGHUP: reads the configuration again; the state is kept');
-    if (this.daemon) await stopInTime(this.daemon);
+    // The next one needs its folder and its ports: with what was left behind it could not start.
+    if (this.daemon) await stopInTime(this.daemon, RELOAD_STOP_MS);
     try {
       await this.begin(next);
     } catch (thrown) {

@@ -18,10 +18,13 @@ export function askedToStop(): Promise<NodeJS.Signals> {
 }
 
 /** Stops within five seconds, whatever hangs. @returns false where something was left behind */
-export async function stopInTime(daemon: Pick<Daemon, 'stop'>): Promise<boolean> {
+export async function stopInTime(
+  daemon: Pick<Daemon, 'stop'>,
+  within_ms = STOP_MS - 500,
+): Promise<boolean> {
   let timer: NodeJS.Timeout | undefined;
   const limit = new Promise<boolean>((resolve) => {
-    timer = setTimeout(() => resolve(false), STOP_MS - 500);
+    timer = setTimeout(() => resolve(false), within_ms);
   });
   const isWhole = await Promise.race([daemon.stop().then(() => true), limit]);
   clearTimeout(timer);

@@ -4,6 +4,7 @@ import type { HealthPart } from '../adapters/http/service.js';
 import type { InfluxConfig } from '../config/site.js';
 import type { UnitDefinition } from '../core/definitions.js';
 import type { WatchEvent } from '../core/watch/event.js';
+import { reasonOf } from '../errors.js';
 import type { Log } from '../log.js';
 import type { DaemonClock } from './clock.js';
 import type { Counters } from './counters.js';
@@ -24,12 +25,16 @@ export interface DatabasePartOptions {
 }
 
 const LOOK_EVERY_MS = 1000;
+/** Events kept while the history cannot be written. */
+const MOST_UNSTORED = 1000;
 
 /** The forwarder to the time-series database and the alert that it cannot be reached. */
 export class DatabasePart {
   private readonly forwarder: InfluxForwarder;
   private watch: DatabaseWatch | null = null;
   private timer: NodeJS.Timeout | null = null;
+  /** Raised or returned, but not in the history yet. */
+  private unstored: WatchEvent[] = [];
 
   constructor(private readonly options: DatabasePartOptions) {
     const { config, history, counters, notices, log } = options;
@@ -75,12 +80,26 @@ export class DatabasePart {
   }
 
   private look(): void {
-    const { history, clock, event } = this.options;
+    const { clock } = this.options;
     const { proven, trouble } = this.forwarder;
     // Nothing has been tried yet: neither up nor down.
     if (!proven && trouble === null) return;
-    for (const one of this.watch?.step(clock.now(), trouble) ?? []) {
-      if (history.write(() => history.events.add(one))) event(one);
+    this.unstored.push(...(this.watch?.step(clock.now(), trouble) ?? []));
+    if (this.unstored.length > 0) this.store();
+  }
+
+  /** Puts what waits into the history and tells it; where that cannot be written, with a later look. */
+  private store(): void {
+    const { history, counters, notices, event } = this.options;
+    try {
+      const fresh = history.write(() => this.unstored.filter((one) => history.events.add(one)));
+      this.unstored = [];
+      for (const one of fresh) event(one);
+    } catch (thrown) {
+      counters.add('history_failures');
+      counters.failed(thrown);
+      counters.add('events_lost', this.unstored.splice(MOST_UNSTORED).length);
+      notices.warn('history_failures', reasonOf(thrown));
     }
   }
 }

@@ -23,17 +23,23 @@ export interface HousekeepingOptions {
   readonly steps: ClockSteps | null;
   /** Cursor of the forwarder; Infinity where there is none. */
   forwarded(): number;
+  /** Newest source time of all units [ms]; -Infinity before the first. */
+  newest_ms(): number;
 }
 
 const RETENTION_EVERY_MS = 3_600_000;
 /** Between two days of an older history that are rolled up [ms]. */
 const ROLL_UP_EVERY_MS = 1000;
 const DAY_MS = 86_400_000;
+/** Entries of the journal deleted at a time, and the pause to the next while there are more [ms]. */
+const FORGET_ENTRIES = 20_000;
+const FORGET_EVERY_MS = 1000;
 
 /** What the clock does: scans closed at their deadline, old rows rolled up and deleted. */
 export class Housekeeping {
   private timers: NodeJS.Timeout[] = [];
   private rolling: NodeJS.Timeout | null = null;
+  private forgetting: NodeJS.Timeout | null = null;
   private mayClose = false;
 
   constructor(private readonly options: HousekeepingOptions) {}
@@ -55,6 +61,8 @@ export class Housekeeping {
     this.timers = [];
     if (this.rolling) clearTimeout(this.rolling);
     this.rolling = null;
+    if (this.forgetting) clearTimeout(this.forgetting);
+    this.forgetting = null;
   }
 
   /**
@@ -88,21 +96,44 @@ export class Housekeeping {
   }
 
   private retain(): void {
-    const { site, history, journal, clock, counters, notices, forwarded } = this.options;
-    const now_ms = Math.floor(clock.now());
+    const { history, counters, notices, forwarded } = this.options;
+    const { now_ms } = this;
+    if (now_ms === Number.NEGATIVE_INFINITY) return;
     try {
       const { estimates, offers, not_forwarded } = history.retain(now_ms, forwarded());
       counters.add('estimates_thinned', estimates);
       counters.add('offers_removed', offers);
       counters.add('estimates_not_forwarded', not_forwarded);
-      const old = journal.seqBefore(now_ms - site.store.keep_readings_days * DAY_MS);
-      const covered = history.checkpoints.coveredSeq(site.units.map((unit) => unit.id));
-      journal.forget(Math.min(old, covered));
       this.options.rewinder.forgetOld();
+      this.forgetting ??= setTimeout(() => this.forgetReadings(), FORGET_EVERY_MS);
     } catch (thrown) {
       counters.add('history_failures');
       counters.failed(thrown);
       notices.warn('history_failures', reasonOf(thrown));
+    }
+  }
+  /**
+   * Ages are held against the newest reading where this machine's clock is ahead of it: one that was set
+   * years ahead would have all that is kept deleted.
+   */
+  private get now_ms(): number {
+    const { clock, newest_ms } = this.options;
+    return Math.floor(Math.min(clock.now(), newest_ms()));
+  }
+
+  /** Old readings go in pieces, as many as there are: two hundred units bring millions an hour. */
+  private forgetReadings(): void {
+    this.forgetting = null;
+    const { site, history, journal, counters, notices } = this.options;
+    try {
+      const old = journal.seqBefore(this.now_ms - site.store.keep_readings_days * DAY_MS);
+      const covered = history.checkpoints.coveredSeq(site.units.map((unit) => unit.id));
+      if (journal.forget(Math.min(old, covered), FORGET_ENTRIES) < FORGET_ENTRIES) return;
+      this.forgetting = setTimeout(() => this.forgetReadings(), FORGET_EVERY_MS);
+    } catch (thrown) {
+      counters.add('journal_failures');
+      counters.failed(thrown);
+      notices.warn('journal_failures', reasonOf(thrown));
     }
   }
 }

@@ -1,9 +1,10 @@
+import type { Database } from 'better-sqlite3';
 import { describe, expect, it } from 'vitest';
 import { freePort } from '../support/ports.js';
 import { requireProgram } from '../support/requirements.js';
 import { startInflux } from '../support/services.js';
 import { waitFor } from '../support/wait.js';
-import { counted, later, makeDaemon, publisher, publishScan } from './harness.js';
+import { count, counted, later, makeDaemon, publisher, publishScan } from './harness.js';
 import { PERIOD_MS, smallSite } from './site.js';
 
 const influxd = requireProgram('influxd');
@@ -56,3 +57,22 @@ describe.skipIf(!influxd)('a daemon whose database comes and goes', () => {
     await daemon.stop();
   }, 60_000);
 });
+
+it('a database that is away while the history cannot be written ends nothing, and is told once it can', async () => {
+  const url = `http://127.0.0.1:${await freePort()}`;
+  const influx = { url, database: 'rock', username: null, password: null, batch_points: 5000 };
+  const daemon = makeDaemon(smallSite(null, { influx }));
+  const told: string[] = [];
+  daemon.service.subscribe((message) => {
+    if (message.kind === 'event') told.push(`${message.event.id} ${message.event.transition}`);
+  });
+  await daemon.start();
+  const { history } = daemon as unknown as { history: { opened: { database: Database } } };
+  history.opened.database.pragma('query_only = 1');
+  await waitFor('failures', () => count(daemon, 'history_failures') > 1);
+  expect(told).toEqual([]);
+  history.opened.database.pragma('query_only = 0');
+  await waitFor('the alert', () => told.length > 0);
+  expect(told).toEqual(['u/database_unreachable/InfluxDB raised']);
+  await daemon.stop();
+}, 30_000);

@@ -1,4 +1,5 @@
 import type { Statement } from 'better-sqlite3';
+import { LEAST_DATE_MS } from '../../core/scan/assemble.js';
 import { reasonOf } from '../../errors.js';
 import { type Database, emptyBytes, openDatabase, storeFailure } from './database.js';
 import {
@@ -247,13 +248,18 @@ export class Journal {
     // Arrival times follow the numbers but for a clock that was set: no index is worth its writes.
     let low = (this.first('SELECT min(seq) AS n FROM entries') ?? 1) - 1;
     let high = this.last;
-    // Of the newest entry up to a number: some numbers may have been left out.
+    // Of the newest entry up to a number: some numbers may have been left out, and what came while this
+    // machine's clock had lost its date would look older than all.
     const at = this.opened()
-      .prepare('SELECT arrival FROM entries WHERE seq <= ? ORDER BY seq DESC LIMIT 1')
+      .prepare(
+        'SELECT arrival FROM entries WHERE seq <= ? AND arrival >= ? ORDER BY seq DESC LIMIT 1',
+      )
       .pluck();
+    const dated_ms = arrival_ms > LEAST_DATE_MS ? LEAST_DATE_MS : Number.MIN_SAFE_INTEGER;
     while (low < high) {
       const middle = Math.ceil((low + high) / 2);
-      if ((at.get(middle) as number) < arrival_ms) low = middle;
+      const came_ms = at.get(middle, dated_ms) as number | undefined;
+      if (came_ms !== undefined && came_ms < arrival_ms) low = middle;
       else high = middle - 1;
     }
     return low;

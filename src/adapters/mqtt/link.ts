@@ -77,6 +77,8 @@ export class MqttLink {
   private isToldDown = false;
   /** Messages by `tell` that the broker has not acknowledged. */
   private telling = 0;
+  /** Ends each wait of `deliver`. */
+  private readonly delivering = new Set<(reason: Error) => void>();
   /** Message ids to be acknowledged by the connection that they came by, in this turn of the loop. */
   private acknowledged: number[] = [];
   private acknowledging: Duplex | null = null;
@@ -107,6 +109,8 @@ export class MqttLink {
 
   async stop(): Promise<void> {
     this.sendAcknowledged();
+    // A broker that hangs says nothing to these either: who waits for one must not hold up the end.
+    for (const end of this.delivering) end(new Error('the link was ended'));
     const client = this.client;
     this.client = null;
     if (!client) return;
@@ -138,12 +142,7 @@ export class MqttLink {
    * @returns false where there is no connection, or too many such are on their way: it is not sent
    */
   tell(topic: string, payload: string): boolean {
-    if (!this.isUp || !this.client || this.telling >= MOST_TELLING) return false;
-    this.telling++;
-    this.client.publish(topic, payload, { qos: 1, retain: false }, () => {
-      this.telling--;
-    });
-    return true;
+    return this.sendOnce(topic, payload, 1);
   }
 
   /**
@@ -151,9 +150,13 @@ export class MqttLink {
    * @returns false where there is no connection, or too many are on their way: it is not sent
    */
   command(topic: string, payload: Buffer): boolean {
+    return this.sendOnce(topic, payload, 0);
+  }
+
+  private sendOnce(topic: string, payload: string | Buffer, qos: 0 | 1): boolean {
     if (!this.isUp || !this.client || this.telling >= MOST_TELLING) return false;
     this.telling++;
-    this.client.publish(topic, payload, { qos: 0, retain: false }, () => {
+    this.client.publish(topic, payload, { qos, retain: false }, () => {
       this.telling--;
     });
     return true;
@@ -161,20 +164,23 @@ export class MqttLink {
 
   /**
    * Publishes a message that is not retained and waits for the broker's word that it has it.
-   * @throws Error where there is no connection, or none within the time
+   * @throws Error where there is no connection, no word within the time, or the link is ended
    */
   async deliver(topic: string, payload: string, within_ms: number): Promise<void> {
     const { client } = this;
     if (!this.isUp || !client) throw new Error('no connection to the broker');
-    let late: NodeJS.Timeout | undefined;
+    let end: (reason: Error) => void = () => undefined;
     const limit = new Promise<never>((_, reject) => {
-      late = setTimeout(() => reject(new Error(`no answer within ${within_ms} ms`)), within_ms);
+      end = reject;
     });
+    const late = setTimeout(() => end(new Error(`no answer within ${within_ms} ms`)), within_ms);
+    this.delivering.add(end);
     const sent = client.publishAsync(topic, payload, { qos: 1, retain: false });
     try {
       await Promise.race([sent, limit]);
     } finally {
       clearTimeout(late);
+      this.delivering.delete(end);
       // What comes after the limit is nobody's.
       sent.catch(() => undefined);
     }

@@ -79,6 +79,15 @@ it('finds the last entry before a time of arrival', () => {
   journal.stop();
 });
 
+it('is not misled by what came while the clock had lost its date', () => {
+  const journal = opened(file());
+  const T = Date.UTC(2026, 0, 1);
+  const came = [T, T + 10, T + 20, 1000, 1010, 1020, 1030, T + 30, T + 40, T + 50];
+  journal.append(came.map((t) => reading('a', t - 7, 1)));
+  expect([T, T + 11, T + 40].map((t) => journal.seqBefore(t))).toEqual([0, 2, 8]);
+  journal.stop();
+});
+
 it('has what it wrote before a failure, and writes on after it, with a new channel as well', () => {
   const path = file();
   const journal = opened(path);

@@ -209,6 +209,29 @@ describe.skipIf(!mosquitto)('the link to a broker that comes and goes', () => {
     expect(harness.downs).toHaveLength(1);
   });
 
+  it('ends at once what waits for the word of a broker that hangs, as it is ended itself', async () => {
+    const server = createServer((socket) => {
+      socket.on('error', () => undefined);
+      socket.once('data', () => {
+        socket.write(Buffer.from([0x20, 2, 0, 0]));
+        socket.resume();
+      });
+      ending.push(async () => socket.destroy());
+    });
+    server.listen(0, '127.0.0.1');
+    await once(server, 'listening');
+    ending.push(async () => server.close());
+    const { port } = server.address() as AddressInfo;
+    const { link } = startLink(`mqtt://127.0.0.1:${port}`, { topics: [] });
+    await waitFor('the link', () => link.connected);
+    const told = link.deliver('out/event', 'x', 60_000).then(
+      () => 'taken',
+      (thrown: Error) => thrown.message,
+    );
+    await link.stop();
+    expect(await told).toBe('the link was ended');
+  });
+
   it('tells an outage once, keeps trying and subscribes again', async () => {
     const port = await freePort();
     const harness = startLink(`mqtt://127.0.0.1:${port}`);
