@@ -10,7 +10,7 @@ import type { Outbox, Withdrawal } from './outbox.js';
 export const FORWARDER_COUNTS = [
   'influx_points',
   'influx_failures',
-  /** Points that InfluxDB refuses for good (400): left out, so that the rest can go on. */
+  /** Points that are refused for good (400, 413): left out, so that the rest can go on. */
   'influx_set_aside',
 ] as const;
 export type ForwarderCount = (typeof FORWARDER_COUNTS)[number];
@@ -41,8 +41,8 @@ const NO_BACKOFF = { getDelay: () => 0, next: () => NO_BACKOFF, reset: () => NO_
 /**
  * Copies the history to InfluxDB 1.x, in order, at least once, behind a cursor in SQLite. Same
  * series and timestamp overwrite, so a repeated write changes nothing. Retried: no connection, no
- * answer, 5xx, a login that is refused. Set aside: what InfluxDB calls a bad request. On 404 the
- * database is created.
+ * answer, 5xx, a login that is refused. Halved: a batch that is called a bad request (400) or too
+ * large (413), also by a proxy; set aside: a single point that still is. On 404 the database is created.
  */
 export class InfluxForwarder {
   private influx: InfluxDB | null = null;
@@ -115,7 +115,7 @@ export class InfluxForwarder {
       if (!this.hasWritten || this.reason !== null) await ping(this.options.config);
       return false;
     }
-    let points: IPoint[] = [];
+    const points: IPoint[] = [];
     let seq = outbox.cursor;
     for (const item of items) {
       if (item.kind === 'withdrawal') {
@@ -133,11 +133,14 @@ export class InfluxForwarder {
       points.push(...next);
       seq = item.seq;
     }
-    points = await this.write(influx, points);
+    const refusals: string[] = [];
+    const written = await this.write(influx, points, refusals);
     // Stopped meanwhile, the outbox may be closed: the batch is repeated after the next start.
     if (this.influx !== influx) return false;
     outbox.moveTo(seq);
-    this.options.count('influx_points', points.length);
+    this.options.count('influx_points', written);
+    // Once the whole batch is through: where a later half fails, it is repeated and refused again.
+    for (const reason of refusals) this.setAside(reason);
     return true;
   }
 
@@ -151,40 +154,54 @@ export class InfluxForwarder {
       // Before the first point there is no database, and nothing to be deleted.
       if (/database not found/.test(reason)) return;
       if (statusOf(thrown) !== 400 && !/Error from InfluxDB/.test(reason)) throw thrown;
-      this.options.count('influx_set_aside', 1);
-      this.options.refused(withoutCredentials(reason));
+      this.setAside(reason);
     }
   }
 
-  /** @returns the points that were written; the others were refused for good */
-  private async write(influx: InfluxDB, points: IPoint[], mayCreate = true): Promise<IPoint[]> {
-    if (points.length === 0) return points;
+  private setAside(reason: string): void {
+    this.options.count('influx_set_aside', 1);
+    this.options.refused(withoutCredentials(reason));
+  }
+
+  /**
+   * @param refusals gets a reason for each point that was refused for good
+   * @returns how many points were written
+   */
+  private async write(
+    influx: InfluxDB,
+    points: IPoint[],
+    refusals: string[],
+    mayCreate = true,
+  ): Promise<number> {
+    if (points.length === 0) return 0;
     try {
       await influx.writePoints(points, { precision: 'ms' });
-      return points;
+      return points.length;
     } catch (thrown) {
       const status = statusOf(thrown);
       if (status === 404 && mayCreate) {
         await influx.createDatabase(this.options.config.database);
-        return this.write(influx, points, false);
+        return this.write(influx, points, refusals, false);
       }
-      if (status !== 400) throw thrown;
-      return this.halve(influx, points, complaintOf(thrown));
+      if (status !== 400 && status !== 413) throw thrown;
+      return this.halve(influx, points, refusals, complaintOf(thrown));
     }
   }
 
   /** Finds the points that are refused by halving the batch, and leaves out those alone. */
-  private async halve(influx: InfluxDB, points: IPoint[], reason: string): Promise<IPoint[]> {
+  private async halve(
+    influx: InfluxDB,
+    points: IPoint[],
+    refusals: string[],
+    reason: string,
+  ): Promise<number> {
     if (points.length === 1) {
-      this.options.count('influx_set_aside', 1);
-      this.options.refused(withoutCredentials(reason));
-      return [];
+      refusals.push(reason);
+      return 0;
     }
     const middle = points.length >> 1;
-    return [
-      ...(await this.write(influx, points.slice(0, middle))),
-      ...(await this.write(influx, points.slice(middle))),
-    ];
+    const first = await this.write(influx, points.slice(0, middle), refusals);
+    return first + (await this.write(influx, points.slice(middle), refusals));
   }
 
   private succeeded(): void {

@@ -1,4 +1,4 @@
-import { createServer, type RequestListener, type Server } from 'node:http';
+import { createServer, type IncomingMessage, type RequestListener, type Server } from 'node:http';
 import type { AddressInfo } from 'node:net';
 import { join } from 'node:path';
 import { afterEach, describe, expect, it } from 'vitest';
@@ -170,6 +170,19 @@ describe.skipIf(!influxd)('the forwarder, against a real InfluxDB', () => {
     expect(row![1]).toBe(200);
   });
 
+  it('gets everything through where the database takes no large writes', async () => {
+    const influx = await startInflux(influxd!, undefined, ['max-body-size = 20000']);
+    ending.push(() => influx.stop());
+    const { history, counts, told, make } = setUp(influx.url);
+    fill(history, 0, 500);
+    make();
+    await waitFor('the backlog to go', () => history.outbox.backlog === 0);
+    const [row] = await select(influx.url, 'select count(state_of_charge) from rockhour_unit');
+    expect(row![1]).toBe(500);
+    expect(counts.influx_set_aside).toBeUndefined();
+    expect(told).toEqual([]);
+  });
+
   it('sets aside the point that the database refuses, alone, and says so', async () => {
     const influx = await startInflux(influxd!);
     ending.push(() => influx.stop());
@@ -215,6 +228,58 @@ describe('the forwarder, against a server that misbehaves', () => {
     await waitFor('the backlog to go', () => history.outbox.backlog === 0);
     expect(counts.influx_failures).toBe(2);
     expect(told.map((line) => line.slice(0, 4))).toEqual(['down', 'up']);
+  });
+
+  /** The lines of a write that comes whole. */
+  async function linesOf(request: IncomingMessage): Promise<string[]> {
+    let text = '';
+    for await (const part of request) text += part;
+    return text.split('\n').filter((line) => line !== '');
+  }
+
+  it('halves what is too large for it or a proxy, and sets aside a point that is so alone', async () => {
+    const MOST_BYTES = 2000;
+    const taken: string[] = [];
+    const url = await misbehaving(async (request, response) => {
+      const lines = await linesOf(request);
+      if (lines.join('\n').length > MOST_BYTES) {
+        response.writeHead(413).end('<html>413 Request Entity Too Large</html>');
+        return;
+      }
+      taken.push(...lines);
+      response.writeHead(204).end();
+    });
+    const { history, counts, told, make } = setUp(url);
+    fill(history, 0, 10);
+    const long = { ...event(T + 5, 'raised'), message: 'x'.repeat(MOST_BYTES) };
+    history.events.add(long);
+    fill(history, 10, 20);
+    make();
+    await waitFor('the backlog to go', () => history.outbox.backlog === 0);
+    expect(taken.filter((line) => line.startsWith('rockhour_unit'))).toHaveLength(20);
+    expect(taken.some((line) => line.startsWith('rockhour_event'))).toBe(false);
+    expect(counts).toMatchObject({ influx_points: taken.length, influx_set_aside: 1 });
+    expect(counts.influx_failures).toBeUndefined();
+    expect(told).toEqual([expect.stringMatching(/^refused: it answers 413: /)]);
+  });
+
+  it('counts a point that is refused once, also where the rest of its batch is repeated', async () => {
+    let outages = 0;
+    const url = await misbehaving(async (request, response) => {
+      const lines = await linesOf(request);
+      const isFirst = lines.some((line) => line.endsWith(` ${T}`));
+      if (isFirst) response.writeHead(400).end('{"error":"bad"}');
+      else response.writeHead(++outages <= 2 ? 503 : 204).end();
+    });
+    const { history, counts, told, make } = setUp(url);
+    fill(history, 0, 2);
+    make();
+    await waitFor('the backlog to go', () => history.outbox.backlog === 0);
+    const { influx_points, influx_set_aside } = counts;
+    // The points of the first estimate, as many as those of the second.
+    expect(influx_set_aside).toBe(influx_points);
+    expect(counts.influx_failures).toBe(2);
+    expect(told.filter((line) => line.startsWith('refused'))).toHaveLength(influx_set_aside!);
   });
 
   it('takes a refused login for an outage, not for a bad point', async () => {
