@@ -32,5 +32,7 @@ export const SPARKPLUG_COUNTS = [
   /** Channels made missing by a death, by a lost connection or at a start. */
   'sparkplug_made_missing',
   'sparkplug_rebirth_requests',
+  /** Edge nodes taken for dead, as they were not heard after a loss of the broker. */
+  'sparkplug_unheard_nodes',
 ] as const;
 export type SparkplugCount = (typeof SPARKPLUG_COUNTS)[number];

@@ -28,6 +28,10 @@ export interface SparkplugHostOptions {
 export const REBIRTH_EVERY_MS = 10_000;
 /** A connection lost for less than this ends nothing: brokers restart [ms]. */
 export const LOST_AFTER_MS = 60_000;
+/** A node that lived before a loss of the broker and is not heard for so long after it is dead [ms]. */
+export const UNHEARD_MS = 60_000;
+/** Meanwhile it is asked to be born again this often: a request at QoS 0 may be lost [ms]. */
+const ASK_UNHEARD_MS = 20_000;
 const TICK_MS = 1000;
 
 interface Node {
@@ -35,6 +39,16 @@ interface Node {
   /** To be born again: asked as soon as it may be. */
   isWanted: boolean;
   mayAsk_ms: number;
+  /** Lived when the broker was lost, and has not been heard since it is back; null: nothing of the kind. */
+  unheard: Unheard | null;
+}
+
+interface Unheard {
+  /** When the broker was lost [ms since 1970]. */
+  readonly lost_ms: number;
+  /** Since when it might have been heard, and is to be asked again, by the steady clock [ms]. */
+  readonly since_ms: number;
+  askAgain_ms: number;
 }
 
 /** How an edge node is, for health. */
@@ -82,7 +96,10 @@ export class SparkplugHost {
         read: (reading) => this.found.push(reading),
         rebirth: () => this.want(key),
       });
-      this.nodes.set(key, { session, isWanted: false, mayAsk_ms: Number.NEGATIVE_INFINITY });
+      this.nodes.set(key, {
+        ...{ session, isWanted: false, unheard: null },
+        mayAsk_ms: Number.NEGATIVE_INFINITY,
+      });
     }
   }
 
@@ -124,10 +141,21 @@ export class SparkplugHost {
     this.timer = null;
   }
 
-  /** Connected and subscribed: what was said meanwhile is not known. */
+  /**
+   * Connected and subscribed: what was said meanwhile is not known. A broker that was killed says no
+   * will, so that a node that died with it is dead only by its silence.
+   */
   linkUp(): void {
+    const { now, steady } = this.options;
+    const lost_ms = this.lost?.time_ms ?? now();
     this.lost = null;
-    for (const key of this.nodes.keys()) this.want(key);
+    const since_ms = steady();
+    for (const [key, node] of this.nodes) {
+      // A link that comes and goes does not begin it anew.
+      if (node.session.isAlive)
+        node.unheard ??= { lost_ms, since_ms, askAgain_ms: since_ms + ASK_UNHEARD_MS };
+      this.want(key);
+    }
   }
 
   linkDown(): void {
@@ -153,6 +181,8 @@ export class SparkplugHost {
     }
     const { kind, device } = parsed;
     if (kind === 'NBIRTH') node.isWanted = false;
+    // What the broker sends once more may be of before it was lost; a death may be of another connection.
+    if (kind !== 'NDEATH' && !duplicate) node.unheard = null;
     node.session.receive(kind, device, read, arrival_ms, duplicate, steady());
     return this.takeFound();
   }
@@ -161,13 +191,34 @@ export class SparkplugHost {
     const { now, steady, add } = this.options;
     const steady_ms = steady();
     for (const { session } of this.nodes.values()) session.tick(now(), steady_ms);
-    for (const node of this.nodes.values()) this.ask(node);
+    for (const node of this.nodes.values()) {
+      this.lookForUnheard(node, steady_ms);
+      this.ask(node);
+    }
     const found = this.takeFound();
     if (found.length > 0) add(found);
     if (this.lost && steady_ms - this.lost.since_ms >= LOST_AFTER_MS) {
       const { time_ms } = this.lost;
       this.lost = null;
       this.forgetAll(time_ms);
+    }
+  }
+
+  private lookForUnheard(node: Node, steady_ms: number): void {
+    const { session, unheard } = node;
+    if (unheard === null) return;
+    const { count, notice } = this.options;
+    if (!session.isAlive) node.unheard = null;
+    else if (steady_ms - unheard.since_ms >= UNHEARD_MS) {
+      node.unheard = null;
+      session.unheard(unheard.lost_ms);
+      count('sparkplug_unheard_nodes');
+      const { group, node: name } = session.name;
+      const asked = `not heard for ${UNHEARD_MS / 1000} s after a loss of the broker`;
+      notice('sparkplug_unheard_nodes', `edge node ${group}/${name} is taken for dead: ${asked}`);
+    } else if (steady_ms >= unheard.askAgain_ms) {
+      unheard.askAgain_ms += ASK_UNHEARD_MS;
+      node.isWanted = true;
     }
   }
 

@@ -125,6 +125,11 @@ export class EdgeSession {
     this.seq = null;
   }
 
+  /** It has not been heard since this time, though it was asked: dead without a word. */
+  unheard(time_ms: number): void {
+    for (const part of this.parts.values()) this.end(part, time_ms, 'dead');
+  }
+
   /** A reading of a channel that is in the journal already. */
   remember(
     { device, metric }: Pick<SparkplugChannel, 'device' | 'metric'>,

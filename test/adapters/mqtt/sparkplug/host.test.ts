@@ -1,6 +1,10 @@
 import type { UMetric } from 'sparkplug-payload/lib/sparkplugbpayload.js';
 import { afterEach, describe, expect, it } from 'vitest';
-import { LOST_AFTER_MS, REBIRTH_EVERY_MS } from '../../../../src/adapters/mqtt/sparkplug/host.js';
+import {
+  LOST_AFTER_MS,
+  REBIRTH_EVERY_MS,
+  UNHEARD_MS,
+} from '../../../../src/adapters/mqtt/sparkplug/host.js';
 import { Assembler } from '../../../../src/core/scan/assemble.js';
 import { EdgeNode, encode, outside } from './edge.js';
 import { edgeUnit, harness, T0 } from './hostHarness.js';
@@ -247,6 +251,87 @@ describe('deaths', () => {
       ['mode@1', 'p@1', 'tt@9', 'e@1', 'valve@1'].map((id) => `${id}=NaN bad`),
     );
     expect(counts.sparkplug_made_missing).toBe(5);
+  });
+});
+
+describe('a node that is not heard after the broker was lost for less than a minute', () => {
+  /** Lost at 10 s and back at 30 s; what was said until then is taken away. */
+  function afterAnOutage() {
+    const all = born();
+    const { clock, host, news } = all;
+    news();
+    clock.ms = T0 + 10_000;
+    clock.steady = 10_000;
+    host.linkDown();
+    const go = (steady_ms: number) => {
+      clock.steady = steady_ms;
+      clock.ms = T0 + steady_ms;
+      host.tick();
+    };
+    go(29_000);
+    go(30_000);
+    host.linkUp();
+    return { ...all, go, back: 30_000 };
+  }
+
+  it('is asked three times and then taken for dead, missing since the loss', () => {
+    const { host, news, asked, counts, go, back } = afterAnOutage();
+    for (let ms = back; ms < back + UNHEARD_MS; ms += 1000) go(ms);
+    expect(asked).toHaveLength(3);
+    expect(news()).toEqual([]);
+    expect(host.states).toEqual([{ name: 'Quarry/PLC1', absent: [] }]);
+    go(back + UNHEARD_MS);
+    expect(news()).toEqual(['mode', 'p', 'tt', 'e', 'valve'].map((id) => `${id}@10000=NaN bad`));
+    expect(counts).toMatchObject({ sparkplug_unheard_nodes: 1, sparkplug_made_missing: 5 });
+    expect(host.states).toEqual([{ name: 'Quarry/PLC1', absent: ['edge node dead', 'Bed dead'] }]);
+    for (let ms = back + UNHEARD_MS; ms < back + 3 * UNHEARD_MS; ms += 1000) go(ms);
+    expect(counts.sparkplug_unheard_nodes).toBe(1);
+    expect(asked).toHaveLength(3);
+  });
+
+  it('is asked for a birth where it speaks again after all, and lives by that', () => {
+    const { receive, news, edge, asked, go, back, host } = afterAnOutage();
+    go(back + UNHEARD_MS);
+    news();
+    const before = asked.length;
+    go(200_000);
+    receive(edge.data('Bed', T0 + 200_000, [byAlias(12, 310)]));
+    expect(asked).toHaveLength(before + 1);
+    expect(news()).toEqual([]);
+    receive(edge.birth(T0 + 201_000, [mode('charge')]));
+    receive(edge.deviceBirth('Bed', T0 + 201_000, BED(310)));
+    expect(news()).toContain('tt@201000=583.15 good');
+    go(400_000);
+    expect(news()).toEqual([]);
+    expect(host.states[0]!.absent).toEqual([]);
+  });
+
+  it('lives where it answers or goes on in time, and may be silent from then on', () => {
+    const answered = afterAnOutage();
+    answered.receive(answered.edge.birth(T0 + 40_000, [mode('charge')]));
+    answered.receive(answered.edge.deviceBirth('Bed', T0 + 40_000, BED()));
+    const goneOn = afterAnOutage();
+    goneOn.receive(goneOn.edge.data('Bed', T0 + 40_000, [byAlias(12, 310)]));
+    for (const { news, go, counts, asked } of [answered, goneOn]) {
+      news();
+      for (let ms = 41_000; ms < 400_000; ms += 1000) go(ms);
+      expect(news()).toEqual([]);
+      expect(counts.sparkplug_unheard_nodes).toBeUndefined();
+      expect(asked).toHaveLength(1);
+    }
+  });
+
+  it('is not heard by what the broker sends once more, and a second loss gives it no more time', () => {
+    const { receive, edge, news, host, go, back, counts } = afterAnOutage();
+    receive(edge.data('Bed', T0 + 9000, [byAlias(12, 310)]), { duplicate: true });
+    news();
+    go(back + 30_000);
+    host.linkDown();
+    go(back + 40_000);
+    host.linkUp();
+    go(back + UNHEARD_MS);
+    expect(counts.sparkplug_unheard_nodes).toBe(1);
+    expect(news()).toHaveLength(5);
   });
 });
 
