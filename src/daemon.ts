@@ -250,8 +250,10 @@ class RockhourDaemon implements Daemon {
     });
     const counted = () => performance.now();
     this.steps = clock.isWall ? new ClockSteps(clock, counted, { counters, notices }) : null;
+    const newest_ms = () =>
+      Math.max(...[...this.runners.values()].map((one) => one.newest_ms ?? -Infinity));
     this.store = new StorePart({
-      ...{ ...common, site },
+      ...{ ...common, site, newest_ms },
       trouble: () => (this.intake.stuck ? 'the journal refuses readings' : entering.trouble),
       retry: () => entering.retry(),
       forwarded: () => this.database?.cursor ?? Number.POSITIVE_INFINITY,
@@ -265,8 +267,7 @@ class RockhourDaemon implements Daemon {
       rewinder: this.rewinder,
       poll_ms,
       forwarded: () => this.database?.cursor ?? Number.POSITIVE_INFINITY,
-      newest_ms: () =>
-        Math.max(...[...this.runners.values()].map((one) => one.newest_ms ?? -Infinity)),
+      newest_ms,
     });
     this.speaker = new Speaker({
       ...{ questions: this.questions, history, notices, runners: this.runners },

@@ -31,15 +31,16 @@ const RETENTION_EVERY_MS = 3_600_000;
 /** Between two days of an older history that are rolled up [ms]. */
 const ROLL_UP_EVERY_MS = 1000;
 const DAY_MS = 86_400_000;
-/** Entries of the journal deleted at a time, and the pause to the next while there are more [ms]. */
+/** Entries of the journal deleted at a time. */
 const FORGET_ENTRIES = 20_000;
-const FORGET_EVERY_MS = 1000;
+/** Between two pieces of what is thinned and deleted, while there are more [ms]. */
+const PIECE_EVERY_MS = 1000;
 
 /** What the clock does: scans closed at their deadline, old rows rolled up and deleted. */
 export class Housekeeping {
   private timers: NodeJS.Timeout[] = [];
   private rolling: NodeJS.Timeout | null = null;
-  private forgetting: NodeJS.Timeout | null = null;
+  private working: NodeJS.Timeout | null = null;
   private mayClose = false;
 
   constructor(private readonly options: HousekeepingOptions) {}
@@ -61,8 +62,8 @@ export class Housekeeping {
     this.timers = [];
     if (this.rolling) clearTimeout(this.rolling);
     this.rolling = null;
-    if (this.forgetting) clearTimeout(this.forgetting);
-    this.forgetting = null;
+    if (this.working) clearTimeout(this.working);
+    this.working = null;
   }
 
   /**
@@ -105,13 +106,14 @@ export class Housekeeping {
       counters.add('offers_removed', offers);
       counters.add('estimates_not_forwarded', not_forwarded);
       this.options.rewinder.forgetOld();
-      this.forgetting ??= setTimeout(() => this.forgetReadings(), FORGET_EVERY_MS);
+      this.working ??= setTimeout(() => this.workOff(), PIECE_EVERY_MS);
     } catch (thrown) {
       counters.add('history_failures');
       counters.failed(thrown);
       notices.warn('history_failures', reasonOf(thrown));
     }
   }
+
   /**
    * Ages are held against the newest reading where this machine's clock is ahead of it: one that was set
    * years ahead would have all that is kept deleted.
@@ -121,19 +123,39 @@ export class Housekeeping {
     return Math.floor(Math.min(clock.now(), newest_ms()));
   }
 
-  /** Old readings go in pieces, as many as there are: two hundred units bring millions an hour. */
-  private forgetReadings(): void {
-    this.forgetting = null;
+  /** In pieces, as many as there are: two hundred units bring millions of readings an hour. */
+  private workOff(): void {
+    this.working = null;
+    const [isMoreToThin, isMoreToForget] = [this.thin(), this.forgetReadings()];
+    if (isMoreToThin || isMoreToForget)
+      this.working = setTimeout(() => this.workOff(), PIECE_EVERY_MS);
+  }
+
+  private thin(): boolean {
+    const { history, counters, notices, forwarded } = this.options;
+    try {
+      const { rows, more } = history.thin(this.now_ms, forwarded());
+      counters.add('estimates_thinned', rows);
+      return more;
+    } catch (thrown) {
+      counters.add('history_failures');
+      counters.failed(thrown);
+      notices.warn('history_failures', reasonOf(thrown));
+      return false;
+    }
+  }
+
+  private forgetReadings(): boolean {
     const { site, history, journal, counters, notices } = this.options;
     try {
       const old = journal.seqBefore(this.now_ms - site.store.keep_readings_days * DAY_MS);
       const covered = history.checkpoints.coveredSeq(site.units.map((unit) => unit.id));
-      if (journal.forget(Math.min(old, covered), FORGET_ENTRIES) < FORGET_ENTRIES) return;
-      this.forgetting = setTimeout(() => this.forgetReadings(), FORGET_EVERY_MS);
+      return journal.forget(Math.min(old, covered), FORGET_ENTRIES) === FORGET_ENTRIES;
     } catch (thrown) {
       counters.add('journal_failures');
       counters.failed(thrown);
       notices.warn('journal_failures', reasonOf(thrown));
+      return false;
     }
   }
 }

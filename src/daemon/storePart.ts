@@ -25,6 +25,8 @@ export interface StorePartOptions {
   retry(): void;
   /** Cursor of the forwarder; Infinity where there is none. */
   forwarded(): number;
+  /** Newest source time of all units [ms]; -Infinity before the first. */
+  newest_ms(): number;
   /** An event that is new. */
   event(event: WatchEvent): void;
 }
@@ -136,15 +138,17 @@ export class StorePart {
    */
   private thin(): boolean {
     const { site, history, journal, clock, counters, notices, forwarded } = this.options;
-    const now_ms = Math.floor(clock.now());
+    // As for retention: by a clock that was set years ahead all would be old.
+    const now_ms = Math.floor(Math.min(clock.now(), this.options.newest_ms()));
+    if (now_ms === Number.NEGATIVE_INFINITY) return false;
     try {
       const covered = history.checkpoints.coveredSeq(site.units.map(({ id }) => id));
       const early = history.thinEarly(now_ms, forwarded());
-      let rows = early;
-      if (rows === 0) {
+      let { rows } = early;
+      if (rows === 0 && !early.more) {
         rows = journal.forget(Math.min(covered, journal.seqBefore(now_ms - READINGS_MS)), ENTRIES);
       }
-      if (rows === 0) rows = history.forgetOldest(now_ms, forwarded());
+      if (rows === 0 && !early.more) rows = history.forgetOldest(now_ms, forwarded());
       counters.add('rows_thinned_early', rows);
       if (rows > 0) {
         notices.warn(
@@ -152,7 +156,7 @@ export class StorePart {
           'the disk is nearly full: the local store is thinned early',
         );
       }
-      return rows > 0;
+      return rows > 0 || early.more;
     } catch (thrown) {
       counters.add('history_failures');
       notices.warn('history_failures', reasonOf(thrown));

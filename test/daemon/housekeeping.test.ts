@@ -22,13 +22,16 @@ function kept(entries: number, clock_ms: number) {
   journal.append(Array.from({ length: entries }, (_, i) => of(NOW - 40 * DAY + i)));
   journal.append([of(NOW)]);
   const retained: number[] = [];
+  let thinned = 0;
+  const counters = new Counters();
   const counts = { estimates: 0, offers: 0, not_forwarded: 0 };
   const housekeeping = new Housekeeping({
-    ...{ site: smallSite(null), journal, counters: new Counters(), poll_ms: 1000, steps: null },
+    ...{ site: smallSite(null), journal, counters, poll_ms: 1000, steps: null },
     clock: { now: () => clock_ms, speed: 1 },
     history: {
       retain: (now_ms: number) => retained.push(now_ms) && counts,
       rollUp: () => false,
+      thin: () => ({ rows: 10, more: ++thinned < 7 }),
       checkpoints: { coveredSeq: () => journal.lastSeq },
     },
     pipeline: { closeDue: () => undefined },
@@ -43,11 +46,15 @@ function kept(entries: number, clock_ms: number) {
   const [oldest] = journal.read(0, 1);
   const left = journal.lastSeq - oldest!.seq + 1;
   journal.stop();
-  return { left, retained };
+  return { left, retained, thinned: counters.get('estimates_thinned') };
 }
 
 it('deletes all readings that are old within the hour, however many there are', () => {
-  expect(kept(250_000, NOW)).toEqual({ left: 1, retained: [NOW] });
+  expect(kept(250_000, NOW)).toEqual({ left: 1, retained: [NOW], thinned: 130 });
+});
+
+it('thins estimates piece by piece until there is no more', () => {
+  expect(kept(10, NOW).thinned).toBe(70);
 });
 
 it('goes by the newest reading where the clock of this machine is years ahead', () => {

@@ -16,7 +16,13 @@ import type { Offers } from './offers.js';
 import type { Outbox } from './outbox.js';
 import { Past } from './past.js';
 import type { Profiles } from './profiles.js';
-import { applyRetention, forgetOldest, type RetentionCounts, thinEstimates } from './retention.js';
+import {
+  applyRetention,
+  forgetOldest,
+  type RetentionCounts,
+  type Thinned,
+  thinEstimates,
+} from './retention.js';
 import type { RewindPoints } from './rewindPoints.js';
 import type { Rewinds } from './rewinds.js';
 import { HISTORY_SCHEMA } from './schema.js';
@@ -260,14 +266,23 @@ export class History {
     return this.ask(() => emptyBytes(this.parts.database));
   }
 
-  /** Thins a day of estimates before its time; gives the rows that went. See applyRetention. */
-  thinEarly(now_ms: number, forwarded: number): number {
+  /** Thins a piece of estimates that are old enough. See applyRetention. */
+  thin(now_ms: number, forwarded: number): Thinned {
+    return this.thinAfter(this.store.thin_after_days, now_ms, forwarded);
+  }
+
+  /** Thins a piece of estimates before their time. */
+  thinEarly(now_ms: number, forwarded: number): Thinned {
+    return this.thinAfter(Math.min(1, this.store.thin_after_days), now_ms, forwarded);
+  }
+
+  private thinAfter(thin_after_days: number, now_ms: number, forwarded: number): Thinned {
     const { database, rollups } = this.parts;
-    const store = { ...this.store, thin_after_days: Math.min(1, this.store.thin_after_days) };
+    const store = { ...this.store, thin_after_days };
     return this.write(() => thinEstimates(database, rollups, store, now_ms, forwarded));
   }
 
-  /** Deletes the oldest day of what is more than a week old and was forwarded; gives the rows. */
+  /** Deletes a piece of the oldest day of what is more than a week old and was forwarded; gives the rows. */
   forgetOldest(now_ms: number, forwarded: number): number {
     const { database, rollups } = this.parts;
     return this.write(() => forgetOldest(database, rollups, now_ms, forwarded));

@@ -2,6 +2,7 @@ import { join } from 'node:path';
 import SQLite from 'better-sqlite3';
 import { describe, expect, it } from 'vitest';
 import { History } from '../../../src/adapters/history/history.js';
+import { PIECE } from '../../../src/adapters/history/retention.js';
 import type { StoreConfig } from '../../../src/config/site.js';
 import type { AlarmCommand } from '../../../src/core/alarm/command.js';
 import type { UnitDefinition } from '../../../src/core/definitions.js';
@@ -218,11 +219,51 @@ describe('retention', () => {
     const history = opened();
     fill(history, 2 * 2880, 30_000);
     const now = T + 2 * DAY;
-    history.retain(now + 5 * DAY, Number.POSITIVE_INFINITY);
-    history.retain(now + 5 * DAY, Number.POSITIVE_INFINITY);
-    history.retain(now + 5 * DAY, Number.POSITIVE_INFINITY);
+    for (let i = 0; i < 6; i++) history.retain(now + 5 * DAY, Number.POSITIVE_INFINITY);
     const left = history.estimates.between('u', T, now, 1e6).map((one) => Date.parse(one.time) - T);
     expect(left).toEqual(Array.from({ length: 288 }, (_, i) => (i + 1) * 600_000 - 30_000));
+    history.stop();
+  });
+
+  it('thins in bounded pieces, unit by unit, until all is thinned', () => {
+    const history = opened();
+    const units = ['a', 'b', 'c'];
+    history.write(() => {
+      for (const id of units)
+        for (let i = 0; i < 5000; i++) {
+          const one = estimate(T + i * 10_000, i / 5000, { unit: id });
+          history.estimates.add({ ...unit, id }, one, NOTHING);
+        }
+    });
+    const now = T + DAY + 6 * DAY;
+    const of = (id: string) => history.estimates.between(id, T, now, 1e6);
+    const rows: number[] = [];
+    for (let more = true; more && rows.length < 100; ) {
+      const piece = history.thin(now, Number.POSITIVE_INFINITY);
+      rows.push(piece.rows);
+      more = piece.more;
+    }
+    // And what is left of one stretch.
+    expect(Math.max(...rows)).toBeLessThanOrEqual(PIECE + 60);
+    expect(rows.length).toBeGreaterThan(5);
+    // 5000 times 10 s are 83 whole stretches of 10 min and a part of one.
+    for (const id of units)
+      expect(of(id).map(({ time }) => (Date.parse(time) - T) / 10_000)).toEqual([
+        ...Array.from({ length: 83 }, (_, i) => 60 * (i + 1) - 1),
+        4999,
+      ]);
+    expect(history.thin(now, Number.POSITIVE_INFINITY)).toEqual({ rows: 0, more: false });
+    history.stop();
+  });
+
+  it('makes room early in pieces too, pictures first', () => {
+    const history = opened();
+    fill(history, 2 * PIECE, 10_000);
+    const now = T + 30 * DAY;
+    expect(history.forgetOldest(now, Number.POSITIVE_INFINITY)).toBe(PIECE);
+    expect(history.forgetOldest(now, PIECE + 100)).toBe(100);
+    expect(history.forgetOldest(now, PIECE + 100)).toBe(0);
+    expect(history.estimates.between('u', T, now, 1e6)).toHaveLength(PIECE - 100);
     history.stop();
   });
 
