@@ -312,17 +312,33 @@ export class Rewinder {
     return times;
   }
 
+  /**
+   * Writes that something is given up. On a full disk that fails too, and an error within a timer ends
+   * the process: null then, and it is tried again.
+   */
+  private givenUp<T>(write: () => T): T | null {
+    const { history, counters, notices } = this.options;
+    try {
+      return history.write(write);
+    } catch (thrown) {
+      counters.add('history_failures');
+      counters.failed(thrown);
+      notices.warn('history_failures', reasonOf(thrown));
+      return null;
+    }
+  }
+
   /** It is begun again; what is there by now stays. */
   private notRemade(runner: UnitRunner, thrown: unknown): void {
     const { notices, history } = this.options;
     const { id } = runner.unit;
     const times = this.countFailure(id, thrown);
-    const isOver = times >= MOST_FAILURES && !isStoreTrouble(thrown);
-    if (!isOver) this.lost.add(runner);
-    else {
-      this.failures.delete(id);
-      history.write(() => history.remade(id));
-    }
+    const isOver =
+      times >= MOST_FAILURES &&
+      !isStoreTrouble(thrown) &&
+      this.givenUp(() => history.remade(id)) !== null;
+    if (isOver) this.failures.delete(id);
+    else this.lost.add(runner);
     const next = isOver ? 'gives them up' : 'tries again';
     notices.warn(
       `rewind_failures ${id}`,
@@ -338,10 +354,16 @@ export class Rewinder {
     const times = this.countFailure(id, thrown);
     let next = 'tries again';
     const isNoted = this.options.entering.flushLate(id);
-    if (times < MOST_FAILURES || isStoreTrouble(thrown) || !isNoted) this.await(id);
+    const isOver = times >= MOST_FAILURES && !isStoreTrouble(thrown) && isNoted;
+    const lost = isOver
+      ? this.givenUp(() => {
+          const count = history.late.waiting(id, runner.seq)?.count ?? 0;
+          history.late.take(id, runner.seq);
+          return count;
+        })
+      : null;
+    if (lost === null) this.await(id);
     else {
-      const lost = history.late.waiting(id, runner.seq)?.count ?? 0;
-      history.late.take(id, runner.seq);
       this.failures.delete(id);
       counters.add('late_lost', lost);
       next = `gives up ${lost} of them`;

@@ -232,6 +232,71 @@ describe('late readings that change nothing', () => {
   });
 });
 
+describe('a disk that is full when something is given up', () => {
+  /** As SQLite says it of a write under a name. */
+  function refuse(rig: Rig, when: string): () => void {
+    const database = new SQLite(`${rig.folder}/history.sqlite`);
+    database.exec(`CREATE TRIGGER full_disk BEFORE ${when}
+      BEGIN SELECT RAISE(ABORT, 'database or disk is full'); END`);
+    return () => {
+      database.exec('DROP TRIGGER full_disk');
+      database.close();
+    };
+  }
+  const failing: Core = {
+    ...fakeCore,
+    advance(unit, state, scan, ask) {
+      if (scan.values[1] === -7) throw new Error('a covariance has lost its sign');
+      return fakeCore.advance(unit, state, scan, ask);
+    },
+  };
+  const tried = (rig: Rig, times: number) =>
+    waitFor('a try', () => {
+      rig.steady_ms += 31_000;
+      rig.rewinder.poll();
+      return rig.counters.get('rewind_failures') >= times;
+    });
+
+  it('leaves late readings waiting, and they are given up once there is room', async () => {
+    const rig = await started({ core: failing });
+    await rig.take(without(scans(0, 30), 'b', 5));
+    await rig.take([reading('b', timeOf(5, 101), -7, timeOf(40))]);
+    const mend = refuse(rig, "INSERT ON cursors WHEN NEW.name = 'late readings of u'");
+    await tried(rig, 4);
+    expect(rig.counters.all()).toMatchObject({ late_lost: 0, history_failures: 2 });
+    expect(rig.rewinder.isAwaited('u')).toBe(true);
+    mend();
+    await tried(rig, 5);
+    expect(rig.counters.get('late_lost')).toBe(1);
+    expect(rig.rewinder.isAwaited('u')).toBe(false);
+  });
+
+  it('leaves lost estimates waiting, and they are given up once there is room', async () => {
+    let isBroken = false;
+    const rig = await started({
+      core: {
+        ...fakeCore,
+        advance(unit, state, scan, ask) {
+          if (isBroken) throw new Error('a covariance has lost its sign');
+          return fakeCore.advance(unit, state, scan, ask);
+        },
+      },
+    });
+    await rig.take(scans(0, 30));
+    rig.history.keep('estimates of u lost before', timeOf(20));
+    rig.rewinder.historyLost();
+    const mend = refuse(rig, "DELETE ON cursors WHEN OLD.name = 'estimates of u lost before'");
+    isBroken = true;
+    await tried(rig, 4);
+    expect(rig.counters.get('history_failures')).toBe(2);
+    expect(rig.history.lostBefore('u')).not.toBeNull();
+    mend();
+    await tried(rig, 5);
+    expect(rig.history.lostBefore('u')).toBeNull();
+    expect(rig.rewinder.words('u')).toBe('');
+  });
+});
+
 describe('states to go back to', () => {
   it('are kept each 15 min for as long as late readings are taken in, and a damaged one is passed over', async () => {
     const rig = await started({ late: { rewind_h: 2 } });
