@@ -18,7 +18,7 @@ ENV NODE_ENV=production \
     MALLOC_ARENA_MAX=2 \
     MALLOC_MMAP_THRESHOLD_=65536 \
     MALLOC_TRIM_THRESHOLD_=131072 \
-    NODE_OPTIONS=--max-semi-space-size=4 \
+    NODE_OPTIONS=--max-semi-space-size=8 \
     ROCKHOUR_HEALTH_URL=http://127.0.0.1:8080/api/live
 # A fixed number, so that a volume's owner can be set from outside.
 RUN groupadd --gid 10001 rockhour \
