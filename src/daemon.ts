@@ -251,7 +251,7 @@ class RockhourDaemon implements Daemon {
     const counted = () => performance.now();
     this.steps = clock.isWall ? new ClockSteps(clock, counted, { counters, notices }) : null;
     const newest_ms = () =>
-      Math.max(...[...this.runners.values()].map((one) => one.newest_ms ?? -Infinity));
+      Math.max(...[...this.runners.values()].map((one) => one.sure_ms ?? -Infinity));
     this.store = new StorePart({
       ...{ ...common, site, newest_ms },
       trouble: () => (this.intake.stuck ? 'the journal refuses readings' : entering.trouble),

@@ -30,7 +30,7 @@ export class Backups {
   /** null before the unit's first scan, and before a saved state is taken over. */
   make(runner: UnitRunner): Uint8Array | null {
     const { site, version, journal, clock } = this.options;
-    const checkpoint = runner.checkpoint();
+    const checkpoint = runner.checkpoint(false);
     if (checkpoint === null) return null;
     return packBackup({
       ...checkpoint,

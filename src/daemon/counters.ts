@@ -23,6 +23,10 @@ const OWN_COUNTS = [
   /** Times that this machine's clock was set. */
   'clock_set_forward',
   'clock_set_back',
+  /** Times that a unit went back to before clocks of plant and machine were ahead together. */
+  'clock_returns',
+  /** Estimates that went with it: of the time that is still to come. */
+  'estimates_taken_back',
   /** Late readings that are in their scans since; whose scan has a value; that are too old to be used. */
   'late_used',
   'late_repeated',

@@ -1,7 +1,9 @@
 import type { History } from '../adapters/history/history.js';
 import type { LateReading } from '../adapters/history/lateReadings.js';
 import { isOfTheMachine, type WatchEvent } from '../core/watch/event.js';
+import { hindsight } from '../core/watch/hindsight.js';
 import { reasonOf } from '../errors.js';
+import { type Stretch, voidAfter } from './clockReturn.js';
 import type { Counters } from './counters.js';
 import type { Notices } from './notices.js';
 import type { RunnerStep, UnitRunner } from './unitRunner.js';
@@ -45,6 +47,11 @@ export class Entering {
   /** Events told while the history could not be written, in their order. */
   private unstored: WatchEvent[] = [];
 
+  /** What units have gone back from and the history still has. */
+  private readonly backFrom = new Map<string, Stretch>();
+  /** Units whose alarms are of before they went back. */
+  private readonly unaligned = new Set<string>();
+
   constructor(private readonly options: EnteringOptions) {}
 
   /** Why the journal or the history could not be read or written the last time, null if they could. */
@@ -58,14 +65,18 @@ export class Entering {
     const time_ms = Date.parse(estimate.time);
     try {
       const news = history.write(() => {
+        const taken = this.takeBack();
         // What waited comes first: the order of what is forwarded.
         for (const one of this.waiting) this.put(one.runner, one.step);
         const { isNew, moved } = this.put(runner, step);
         const late = this.unstored.filter((one) => history.events.add(one));
         this.keepPoint(runner, time_ms);
-        return { isNew, moved, late, events: events.filter((one) => history.events.add(one)) };
+        const own = events.filter((one) => history.events.add(one));
+        const aligned = isNew ? this.aligned(runner, estimate.time) : [];
+        return { isNew, moved, taken, late, events: [...own, ...aligned] };
       });
-      this.written(news.late);
+      if (news.isNew) this.unaligned.delete(runner.unit.id);
+      this.written(news.late, news.taken);
       if (news.isNew) stepped(runner, step);
       for (const one of news.events) event(one);
       if (news.moved) alarmsMoved(runner.unit.id);
@@ -81,6 +92,45 @@ export class Entering {
     this.checkpointIfDue(runner, time_ms);
   }
 
+  /** A unit has gone back to before clocks were ahead: what is due by source times is due anew. */
+  wentBack({ unit }: UnitRunner, stretch: Stretch): void {
+    this.nextCheckpoint.delete(unit.id);
+    this.nextPoint.delete(unit.id);
+    // A second one, while the history cannot be written, goes back no further than what came of the first.
+    const { from_seq, before_ms } = this.backFrom.get(unit.id) ?? stretch;
+    this.backFrom.set(unit.id, { ...stretch, from_seq, before_ms });
+    this.unaligned.add(unit.id);
+    const after_ms = voidAfter(stretch);
+    this.waiting = this.waiting.filter(
+      ({ runner, step }) => runner.unit !== unit || step.closed.scan.time_ms <= after_ms,
+    );
+  }
+
+  /**
+   * What units told by clocks that were ahead goes before anything else of them is written, within a
+   * transaction; gives the estimates that go.
+   */
+  private takeBack(): number {
+    const { history } = this.options;
+    let estimates = 0;
+    for (const [unit, stretch] of this.backFrom) {
+      history.rewindPoints.forgetSaved(unit, stretch.from_seq, stretch.through_seq);
+      estimates += history.takeBack(unit, voidAfter(stretch));
+    }
+    return estimates;
+  }
+
+  /** What is told of alarms by clocks that were ahead and does not hold is returned, within a transaction. */
+  private aligned(runner: UnitRunner, time: string): WatchEvent[] {
+    const { id } = runner.unit;
+    if (!this.unaligned.has(id)) return [];
+    const { history } = this.options;
+    const active = history.alarms.active(id).filter(({ kind }) => !isOfTheMachine(kind));
+    return hindsight(active, runner.standing, time, 'clocks that are right again').filter((one) =>
+      history.events.add(one),
+    );
+  }
+
   /** So much waits to be stored that no more may be added. */
   get isFull(): boolean {
     return this.waiting.length >= MOST_WAITING;
@@ -90,11 +140,12 @@ export class Entering {
   retry(): boolean {
     const { history } = this.options;
     try {
-      const late = history.write(() => {
+      const { taken, late } = history.write(() => {
+        const estimates = this.takeBack();
         for (const { runner, step } of this.waiting) this.put(runner, step);
-        return this.unstored.filter((one) => history.events.add(one));
+        return { taken: estimates, late: this.unstored.filter((one) => history.events.add(one)) };
       });
-      this.written(late);
+      this.written(late, taken);
       return true;
     } catch (thrown) {
       this.storeFailed('history_failures', thrown);
@@ -102,9 +153,11 @@ export class Entering {
     }
   }
 
-  /** What waited has been stored. */
-  private written(late: readonly WatchEvent[]): void {
+  /** What waited has been stored, and so many estimates taken back. */
+  private written(late: readonly WatchEvent[], taken: number): void {
     this.storeTrouble = null;
+    this.backFrom.clear();
+    this.options.counters.add('estimates_taken_back', taken);
     this.waiting = [];
     this.unstored = [];
     for (const unit of new Set(late.map((one) => one.unit))) this.options.alarmsMoved(unit);
@@ -153,7 +206,8 @@ export class Entering {
   save(runner: UnitRunner, last = false): void {
     const { history } = this.options;
     const checkpoint = runner.checkpoint();
-    if (!checkpoint || (this.waiting.length > 0 && !this.retry())) return;
+    const isToWrite = this.waiting.length > 0 || this.backFrom.size > 0;
+    if (!checkpoint || (isToWrite && !this.retry())) return;
     try {
       history.write(() => {
         this.writeLate(runner.unit.id);
@@ -219,7 +273,7 @@ export class Entering {
     this.nextPoint.set(unit.id, time_ms < from_ms ? from_ms : begin_ms + point_every_ms);
     if (time_ms < from_ms) return;
     if (history.rewindPoints.hasOneOf(unit.id, time_ms, point_every_ms)) return;
-    const checkpoint = runner.checkpoint();
+    const checkpoint = runner.checkpoint(false);
     if (checkpoint) history.rewindPoints.add(unit, checkpoint, point_every_ms);
   }
 }

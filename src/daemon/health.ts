@@ -5,6 +5,7 @@ import type { EdgeNodeState } from '../adapters/mqtt/sparkplug/host.js';
 import type { LeftOutUnit } from '../config/site.js';
 import { LEAST_DATE_MS } from '../core/scan/assemble.js';
 import type { DaemonClock } from './clock.js';
+import { returnWords } from './clockReturn.js';
 import { type ClockStep, stepWords } from './clockSteps.js';
 import { zoneWords } from './clockWords.js';
 import type { UnitRunner } from './unitRunner.js';
@@ -82,11 +83,19 @@ export function unitHealth(
   const ahead =
     future === 0 ? '' : `; ${future} readings stamped ahead of this machine's clock were not used`;
   const rewound = late === '' ? '' : `; ${late}`;
-  const told = `${ahead}${rewound}${zonesOff(runner.wrongZones)}${lostAtStart(runner.lost)}`;
+  const told = `${ahead}${rewound}${zonesOff(runner.wrongZones)}${lostAtStart(runner.lost)}${clocksOff(runner)}`;
   if (runner.newest_ms === null) return { name, ok: false, detail: `no reading yet${told}` };
   const age_s = Math.max(0, (clock.now() - runner.newest_ms) / 1000);
   const ok = age_s <= runner.unit.watch.data_age_s.limit;
   return { name, ok, detail: `newest reading ${Math.round(age_s)} s old${told}` };
+}
+
+function clocksOff({ clocks }: UnitRunner): string {
+  const { waiting, stretches } = clocks;
+  const last = stretches.at(-1);
+  const doubt =
+    waiting > 0 ? `; ${waiting} readings live by this machine's clock wait: it stands ahead` : '';
+  return `${doubt}${last ? `; ${returnWords(last)}` : ''}`;
 }
 
 /** A unit that is not run until its configuration is mended. */

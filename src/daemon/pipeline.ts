@@ -4,6 +4,7 @@ import { isMachineDateless, type ReadingFate } from '../core/scan/assemble.js';
 import { reasonOf } from '../errors.js';
 import type { Log } from '../log.js';
 import type { DaemonClock, SteadyClock } from './clock.js';
+import { LEAST_LEAD_MS, returnWords } from './clockReturn.js';
 import { zoneWords } from './clockWords.js';
 import type { Counters } from './counters.js';
 import type { Entering } from './entering.js';
@@ -28,7 +29,9 @@ const TURN_ENTRIES = 64;
 const RETRY_MS = 1000;
 
 /** What a person is told of besides the count. */
-const TOLD_FATES: readonly string[] = ['late', 'future', 'dateless', 'wrong_zone', 'unconfigured'];
+const TOLD_FATES: readonly string[] = [
+  ...['late', 'future', 'dateless', 'wrong_zone', 'clock_back', 'unconfigured'],
+];
 
 export interface PipelineOptions {
   readonly journal: Journal;
@@ -219,7 +222,20 @@ export class Pipeline {
     line.mayStep = true;
     if (fate === null) return;
     const isLive = this.tell(entry, fate);
+    if (fate === 'clock_back') this.goneBack(runner, isLive);
     if (fate === 'late' && entry.kind === 'reading') this.options.late(runner, entry, isLive);
+  }
+
+  /** Says where a unit has gone back to before clocks were ahead; what a replay repeats was said. */
+  private goneBack(runner: UnitRunner, isNew: boolean): void {
+    const back = runner.takeWentBack();
+    if (back === null) return;
+    const { counters, log, entering } = this.options;
+    entering.wentBack(runner, back.stretch);
+    if (!isNew) return;
+    const { id } = runner.unit;
+    counters.add('clock_returns');
+    log.warn({ unit: id, ...back.stretch }, `unit ${id}: ${returnWords(back.stretch)}`);
   }
 
   /** Counts what became of an entry, where it is not of a replay; whether it is not. */
@@ -296,7 +312,13 @@ export class Pipeline {
     );
     const standing = entering.standingOf(runner.unit.id);
     try {
-      runner.recover(history.checkpoints.list(runner.unit)[0], standing);
+      // One that is far ahead is of clocks that were.
+      const end_ms = (runner.newest_ms ?? Number.POSITIVE_INFINITY) + LEAST_LEAD_MS;
+      const saved = history.checkpoints.list(runner.unit);
+      runner.recover(
+        saved.find(({ time_ms }) => time_ms <= end_ms),
+        standing,
+      );
     } catch {
       runner.recover(undefined, standing);
     }
@@ -312,6 +334,7 @@ function describe(entry: JournalEntry, fate: string): string {
     future: `is stamped ${(-behind_s).toFixed(1)} s ahead of this machine's clock`,
     dateless: 'is of a clock that has lost its date: not used',
     wrong_zone: `is ${zoneWords(-behind_s / 3600)}: not used`,
+    clock_back: `is live by this machine's clock, and the unit stands further ahead: it waits`,
   }[fate];
   return `${entry.unit}, ${entry.channel}: the reading of ${time} ${why ?? 'has no such channel now'}`;
 }

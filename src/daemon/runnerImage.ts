@@ -4,6 +4,7 @@ import type { ZoneState } from '../core/scan/zones.js';
 import type { UnitSnapshot } from '../core/unit.js';
 import type { UnitShape } from '../core/unitShape.js';
 import type { WatchEvent } from '../core/watch/event.js';
+import type { ClockReturnState } from './clockReturn.js';
 
 /** What a checkpoint holds: estimator and open scans, as of one journal entry. */
 export interface RunnerImage {
@@ -15,6 +16,8 @@ export interface RunnerImage {
   readonly standing?: readonly WatchEvent[];
   /** Absent as above. */
   readonly zones?: ZoneState;
+  /** Absent as above, and in one that was put aside. */
+  readonly clocks?: ClockReturnState;
 }
 
 /** A state saved under another definition, to be taken over where the journal has come to its time. */

@@ -22,6 +22,7 @@ import { alignWatch } from '../core/watch/align.js';
 import { lostToVersion } from '../core/watch/carry.js';
 import type { WatchView } from '../core/watch/causes.js';
 import type { WatchEvent } from '../core/watch/event.js';
+import { ClockReturn, type Numbered, type WentBack } from './clockReturn.js';
 import type { Core } from './core.js';
 import { measuredIn } from './measured.js';
 import { type Awaited, describedImage, type RunnerImage } from './runnerImage.js';
@@ -88,6 +89,12 @@ export class UnitRunner {
   /** What the state has raised and not returned, by id, as it was raised. */
   private raised = new Map<string, WatchEvent>();
   private readonly zones: ZoneWatch;
+  /** Knows where clocks of plant and machine were ahead together. */
+  readonly clocks: ClockReturn;
+  /** It has gone back, and nobody was told yet. */
+  private wentBack: WentBack | null = null;
+  /** The steady clock at the last entry [ms]. */
+  private steady_ms = 0;
 
   constructor(
     readonly unit: UnitDefinition,
@@ -100,6 +107,7 @@ export class UnitRunner {
     this.assembler = new Assembler(unit, options, this.finish);
     this.state = core.startUnit(unit);
     this.zones = new ZoneWatch(unit);
+    this.clocks = new ClockReturn(unit, options.future_tolerance_ms);
   }
 
   /** Last journal entry that is in the state. */
@@ -110,6 +118,12 @@ export class UnitRunner {
   /** Newest source time believed [ms], null before the first. */
   get newest_ms(): number | null {
     return this.assembler.newest;
+  }
+
+  /** The same without what it has come ahead at once of late: that may be of clocks that are wrong. */
+  get sure_ms(): number | null {
+    const { newest_ms } = this;
+    return newest_ms === null ? null : newest_ms - this.clocks.ahead_ms;
   }
 
   get skippedScans(): number {
@@ -172,6 +186,8 @@ export class UnitRunner {
     this.taken_seq = checkpoint.journal_seq;
     this.raised = byId(image.standing ?? standing);
     if (image.zones) this.zones.restore(image.zones);
+    this.clocks.restore(image.clocks);
+    this.steady_ms = steady_ms;
     // A plant that stays silent from here on still sees its scans close.
     if (assembler.newest !== null) this.plantClock.observe(assembler.newest, steady_ms);
     // A core of a test may watch nothing.
@@ -217,17 +233,24 @@ export class UnitRunner {
     throw new RangeError(`state must yield a finite state of charge, got ${state_of_charge}`);
   }
 
-  /** The whole state; null before the first scan, and before a saved one is taken over. */
-  checkpoint(): Checkpoint | null {
+  /**
+   * The whole state; null before the first scan, and before a saved one is taken over.
+   * @param whole false: without the state of before that waits while clocks may be ahead
+   */
+  checkpoint(whole = true): Checkpoint | null {
     if (this.state.time_ms === null || this.awaited !== null) return null;
-    const image: RunnerImage = {
+    const image: RunnerImage = { ...this.image(), clocks: this.clocks.save(whole) };
+    return { time_ms: this.state.time_ms, journal_seq: this.taken_seq, image };
+  }
+
+  private image(): RunnerImage {
+    return {
       unit: this.core.saveUnit(this.state),
       assembler: this.assembler.save(),
       shape: shapeOf(this.unit),
       standing: this.standing,
       zones: this.zones.save(),
     };
-    return { time_ms: this.state.time_ms, journal_seq: this.taken_seq, image };
   }
 
   snapshot(): UnitSnapshot {
@@ -242,22 +265,80 @@ export class UnitRunner {
     if (entry.seq <= this.taken_seq) return null;
     this.taken_seq = entry.seq;
     this.heard_ms = entry.arrival_ms;
+    this.steady_ms = steady_ms;
+    this.clocks.hear(entry.arrival_ms);
     if (entry.kind === 'close') {
       this.assembler.closeThrough(entry.scan_index);
       return null;
     }
     const channel = this.channelIndex.get(entry.channel);
     if (channel === undefined) return 'unconfigured';
-    const { time_ms, arrival_ms, value } = entry;
-    const fate = this.assembler.add({ channel, time_ms, arrival_ms, value });
+    const { seq, time_ms, arrival_ms, value } = entry;
+    const reading = { seq, channel, time_ms, arrival_ms, value };
+    const { newest_ms } = this;
+    const look = this.clocks.look(reading, newest_ms);
+    if (look !== 'own') {
+      if (look !== 'kept') this.goBack(look);
+      return 'clock_back';
+    }
+    if (newest_ms !== null && this.isSettled && this.clocks.isJump(reading, newest_ms))
+      this.clocks.put(this.image(), Math.max(newest_ms, this.state.time_ms ?? newest_ms), reading);
+    return this.add(reading);
+  }
+
+  /** Takes a reading in where the unit stands. */
+  private add(reading: Numbered): ReadingFate {
+    const { channel, time_ms, arrival_ms } = reading;
+    const fate = this.assembler.add(reading);
     if (fate !== 'future' && fate !== 'dateless')
-      this.plantClock.observe(believedTime(entry), steady_ms);
+      this.plantClock.observe(believedTime(reading), this.steady_ms);
     if (fate === 'late' || fate === 'future') {
       const isOff = this.zones.look(channel, time_ms, arrival_ms, this.newest_ms);
       return isOff ? 'wrong_zone' : fate;
     }
     if (fate !== 'dateless') this.zones.clear(channel);
     return fate;
+  }
+
+  /**
+   * Back to the state of before clocks were ahead, or to none; readings that are live by the clocks of
+   * now, and have waited, are taken in with the steps that follow.
+   */
+  private goBack(back: WentBack): void {
+    const { image, stretch } = back;
+    this.assembler = new Assembler(this.unit, this.options, this.finish);
+    if (image) this.assembler.restore(image.assembler);
+    this.state = image
+      ? this.core.restoreUnit(this.unit, image.unit)
+      : this.core.startUnit(this.unit);
+    this.raised = byId(image?.standing ?? []);
+    if (image?.zones) this.zones.restore(image.zones);
+    this.plantClock.restart();
+    const { newest } = this.assembler;
+    if (newest !== null) this.plantClock.observe(newest, this.steady_ms);
+    // A saved state of clocks that were ahead would be awaited for ever.
+    if (this.awaited !== null && this.awaited.time_ms > stretch.found_ms) this.awaited = null;
+    Object.assign(this.view, { dispatch: null, headroom: null });
+    this.unsaved = true;
+    this.wentBack = back;
+  }
+
+  /** Where the unit has gone back since this was asked last; null where it has not. */
+  takeWentBack(): WentBack | null {
+    const { wentBack } = this;
+    this.wentBack = null;
+    return wentBack;
+  }
+
+  /** The next closed scan, of readings that had to wait as well. */
+  private nextClosed(): ClosedScan | null {
+    for (;;) {
+      const closed = this.assembler.take();
+      if (closed) return closed;
+      const reading = this.clocks.next();
+      if (!reading) return null;
+      this.add(reading);
+    }
   }
 
   /** Whether a reading is off by the whole hours by which its channel's clock was found to be off. */
@@ -299,8 +380,9 @@ export class UnitRunner {
    *   are no part of the state
    */
   step(hours: 'now' | 'later' | 'none' = 'now'): RunnerStep | null {
-    const closed = this.assembler.take();
+    const closed = this.nextClosed();
     if (!closed) return null;
+    this.clocks.step(closed.reported);
     const { scan } = closed;
     if (this.awaited !== null && scan.time_ms > this.awaited.time_ms) this.takeOver(this.awaited);
     const isDue = hours !== 'none' && this.isHoursDue(scan.time_ms);
@@ -369,6 +451,7 @@ export class UnitRunner {
     this.state = other.state;
     this.raised = other.raised;
     this.awaited = other.awaited;
+    this.clocks.restore(other.clocks.save(true));
     const { estimate, profile, measured, counts, watch } = other.view;
     Object.assign(this.view, { estimate, profile, measured, counts, watch });
   }

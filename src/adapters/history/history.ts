@@ -27,6 +27,7 @@ import type { RewindPoints } from './rewindPoints.js';
 import type { Rewinds } from './rewinds.js';
 import { HISTORY_SCHEMA } from './schema.js';
 import { isDamage, type SetAside, wasOurs } from './setAside.js';
+import { takeBack } from './takenBack.js';
 import type { WatchViews } from './watchViews.js';
 
 /** Name under which it is kept up to when estimates of a unit were lost and are to be made again. */
@@ -286,6 +287,11 @@ export class History {
   forgetOldest(now_ms: number, forwarded: number): number {
     const { database, rollups } = this.parts;
     return this.write(() => forgetOldest(database, rollups, now_ms, forwarded));
+  }
+
+  /** See takeBack. */
+  takeBack(unit: string, after_ms: number): number {
+    return this.write(() => takeBack(this.parts, unit, after_ms));
   }
 
   /** Rolls up a day of what is not yet, as an older version left it; false where there is no such day. */

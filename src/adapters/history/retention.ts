@@ -200,14 +200,14 @@ class Thinning {
       .run(span);
     database
       .prepare('INSERT OR REPLACE INTO cursors (name, value) VALUES (?, ?)')
-      .run(reachedName(unit), span.to);
+      .run(thinnedName(unit), span.to);
     return { looked, removed: changes, isCut: span.to < end_ms };
   }
 
   /** Up to when a unit is thinned [ms]; an older version had one time for all units. */
   private reached(unit: string): number {
     const sql = 'SELECT value FROM cursors WHERE name = ?';
-    const known = this.one(sql, [reachedName(unit)]) ?? this.one(sql, ['thinned']);
+    const known = this.one(sql, [thinnedName(unit)]) ?? this.one(sql, ['thinned']);
     return known ?? Number.MIN_SAFE_INTEGER;
   }
 
@@ -225,4 +225,5 @@ interface ThinnedUnit {
 
 const NOTHING: ThinnedUnit = { looked: 0, removed: 0, isCut: false };
 
-const reachedName = (unit: string) => `thinned ${unit}`;
+/** Name of the cursor up to which a unit is thinned. */
+export const thinnedName = (unit: string) => `thinned ${unit}`;

@@ -33,6 +33,13 @@ export class RewindPoints {
       .run(unit, after_ms, end_ms);
   }
 
+  /** Deletes states that were saved within a span of the journal. */
+  forgetSaved(unit: string, from_seq: number, through_seq: number): void {
+    this.database
+      .prepare('DELETE FROM rewind_points WHERE unit = ? AND journal_seq BETWEEN ? AND ?')
+      .run(unit, from_seq, through_seq);
+  }
+
   /** Whether a state is kept of the stretch that a time lies in, from before it or of it. */
   hasOneOf(unit: string, time_ms: number, every_ms: number): boolean {
     const from = Math.floor(time_ms / every_ms) * every_ms;

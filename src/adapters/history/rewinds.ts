@@ -37,23 +37,30 @@ export class Rewinds {
   /**
    * Notes that what the time-series database has of a unit's scans in a span is void; what holds there
    * is entered behind it.
+   *
+   * @param again false: what comes there is told for the first time, not once more
    */
-  withdraw(unit: string, from_ms: number, to_ms: number): void {
+  withdraw(unit: string, from_ms: number, to_ms: number, again = true): void {
     const [from, to] = [from_ms, to_ms].map((time_ms) => new Date(time_ms).toISOString());
     this.database
       .prepare('INSERT INTO withdrawals (seq, unit, time, json) VALUES (?, ?, ?, ?)')
-      .run(this.sequence.next++, unit, to_ms, JSON.stringify({ from, to }));
+      .run(
+        this.sequence.next++,
+        unit,
+        to_ms,
+        JSON.stringify({ from, to, ...(again ? {} : { again }) }),
+      );
   }
 
-  /** All that was withdrawn of a unit's scans. */
+  /** All that was withdrawn of a unit's scans, to be told again. */
   withdrawn(unit: string): { readonly from_ms: number; readonly to_ms: number }[] {
     const rows = this.database
       .prepare('SELECT json FROM withdrawals WHERE unit = ?')
       .pluck()
       .all(unit) as string[];
-    return rows.map((json) => {
-      const { from, to } = JSON.parse(json) as { from: string; to: string };
-      return { from_ms: Date.parse(from), to_ms: Date.parse(to) };
+    return rows.flatMap((json) => {
+      const { from, to, again } = JSON.parse(json) as { from: string; to: string; again?: false };
+      return again === false ? [] : [{ from_ms: Date.parse(from), to_ms: Date.parse(to) }];
     });
   }
 }

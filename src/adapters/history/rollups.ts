@@ -102,6 +102,20 @@ export class Rollups {
     });
   }
 
+  /** Forgets what is rolled up of a time and after, where rows are gone; what comes is rolled up from there. */
+  cut(unit: string, from_ms: number): void {
+    const rolled = this.rolled(unit);
+    if (rolled === null) return;
+    LEVELS_MS.forEach((width_ms, level) => {
+      this.database
+        .prepare(`DELETE FROM ${TABLES[level]} WHERE unit = ? AND time >= ?`)
+        .run(unit, floorTo(from_ms, width_ms));
+    });
+    const to = Math.min(rolled.to, floorTo(from_ms, FINEST_MS));
+    if (rolled.from <= to) this.set(unit, { from: rolled.from, to });
+    else this.database.prepare('DELETE FROM rolled_up WHERE unit = ?').run(unit);
+  }
+
   /** Units that have estimates. */
   units(): string[] {
     // One look-up per unit: DISTINCT would walk through every row.

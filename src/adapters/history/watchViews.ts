@@ -33,6 +33,12 @@ export class WatchViews {
       .run(unit, from_ms, end_ms);
   }
 
+  /** The next view is due, whatever was given before. */
+  beginAnew(unit: string): void {
+    this.due.delete(unit);
+    this.states.delete(unit);
+  }
+
   latest(unit: string): WatchView | null {
     const content = this.database
       .prepare('SELECT content FROM watch WHERE unit = ? ORDER BY time DESC LIMIT 1')

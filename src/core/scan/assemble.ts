@@ -29,6 +29,8 @@ export interface AssemblerOptions {
  * was closed just before, but the channel reports by exception and this is the newest of it: it holds
  * from the next scan on. `future`: its source time lies beyond the tolerance. `dateless`: its source
  * has lost its date. `wrong_zone`: the clock of its source is off by whole hours, see ZoneWatch.
+ * `clock_back`: it is live by the machine's clock, and the unit stands further ahead: it waits until it is
+ * sure that the clocks were wrong before; the daemon alone says so.
  */
 export const READING_FATES = [
   'taken',
@@ -40,6 +42,7 @@ export const READING_FATES = [
   'future',
   'dateless',
   'wrong_zone',
+  'clock_back',
 ] as const;
 export type ReadingFate = (typeof READING_FATES)[number];
 

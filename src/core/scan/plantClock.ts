@@ -15,6 +15,11 @@ export class PlantClock {
     this.seen_at_ms = steady_ms;
   }
 
+  /** All that was seen was of clocks that were wrong. */
+  restart(): void {
+    this.newest_ms = null;
+  }
+
   /** The plant's time when the steady clock shows `steady_ms`; null before the first reading. */
   at(steady_ms: number): number | null {
     if (this.newest_ms === null) return null;

@@ -85,7 +85,9 @@ export function* planRewind(
       const channel = live.channelOf(entry.channel);
       const isWaiting = head?.seq === entry.seq;
       if (isWaiting) head = waiting.next().value;
-      if (channel === undefined || isFuture(entry, parts.future_tolerance_ms)) {
+      const isOfNoTime =
+        isFuture(entry, parts.future_tolerance_ms) || live.clocks.wasPutAside(entry);
+      if (channel === undefined || isOfNoTime) {
         if (isWaiting) useless.push({ time_ms, seq: entry.seq });
       } else if (isWaiting && live.isWrongZone(entry)) {
         useless.push({ time_ms, seq: entry.seq });

@@ -55,6 +55,7 @@ export class Rerun {
   private hasMoreLate = true;
   private lastPoint_ms: number;
   private readonly period_ms: number;
+  private readonly found_seq: number;
 
   constructor(private readonly parts: RerunParts) {
     const { history, second, from_ms, enter_from_ms = Number.NEGATIVE_INFINITY } = parts;
@@ -63,6 +64,9 @@ export class Rerun {
     this.past = history.past(second.unit, Math.max(open_ms, enter_from_ms));
     this.latePlace = { time_ms: this.past.from_ms, seq: -1 };
     this.lastPoint_ms = from_ms;
+    const { clocks } = this.parts.live;
+    second.clocks.follow(clocks);
+    this.found_seq = clocks.found_seq;
   }
 
   /** Begin of the oldest scan that is made again [ms]. */
@@ -85,7 +89,11 @@ export class Rerun {
         ...[live.unit.id, seq, live.seq, JOURNAL_PAGE],
       );
       seq = Math.max(seq, reached);
-      for (const entry of entries) yield* this.take(entry);
+      for (const entry of entries) {
+        this.requireSameClocks();
+        if (live.clocks.wasPutAside(entry)) second.startAt(entry.seq);
+        else yield* this.take(entry);
+      }
       yield 'more';
       if (this.isFilled) return;
       if (seq < live.seq) continue;
@@ -106,12 +114,12 @@ export class Rerun {
   }
 
   private *takeLateBefore(time_ms: number): Generator<'more'> {
-    const { journal, second } = this.parts;
+    const { journal, second, live } = this.parts;
     for (let next = this.nextLate(); next && next.time_ms < time_ms; next = this.nextLate()) {
       this.lateAt++;
       this.latePlace = next;
       const entry = journal.at(next.seq);
-      if (entry?.kind === 'reading') second.takeLate(entry);
+      if (entry?.kind === 'reading' && !live.clocks.wasPutAside(entry)) second.takeLate(entry);
       yield* this.steps();
     }
   }
@@ -129,9 +137,16 @@ export class Rerun {
   private *steps(): Generator<'more'> {
     const { second } = this.parts;
     for (let step = second.step('none'); step; step = second.step('none')) {
+      this.requireSameClocks();
       this.enter(step);
       yield 'more';
     }
+  }
+
+  /** Begun again, what is put aside is left out. */
+  private requireSameClocks(): void {
+    if (this.parts.live.clocks.found_seq === this.found_seq) return;
+    throw new RangeError('meanwhile clocks were found to have been ahead');
   }
 
   private enter(step: RunnerStep): void {
@@ -154,7 +169,7 @@ export class Rerun {
     this.last = step;
     const stretch = (time_ms: number) => Math.floor(time_ms / point_every_ms);
     if (stretch(scan.time_ms) === stretch(this.lastPoint_ms)) return;
-    const state = second.checkpoint();
+    const state = second.checkpoint(false);
     if (state) history.rewindPoints.add(second.unit, state, point_every_ms, this.lastPoint_ms);
     this.lastPoint_ms = scan.time_ms;
   }

@@ -212,13 +212,18 @@ export class Rewinder {
   /** Deletes states and late readings of before what can be gone back to. */
   forgetOld(): void {
     const { history, runners, rules, counters } = this.options;
-    for (const { unit, newest_ms } of runners) {
+    for (const { unit, newest_ms, clocks } of runners) {
       if (newest_ms === null || unit.id === this.busyWith) continue;
-      const end_ms = newest_ms - rules.reach_ms;
+      // One state from before it, for what is late by nearly as much.
+      const reach_ms = rules.reach_ms + rules.point_every_ms;
+      // Clocks may be ahead at present: then it goes back to before, and what is of then stays.
+      const { aside_ms } = clocks;
+      const end_ms = Math.min(newest_ms, aside_ms ?? newest_ms) - reach_ms;
       history.write(() => {
-        // One state from before it, for what is late by nearly as much.
-        history.rewindPoints.forget(unit, end_ms - rules.point_every_ms);
-        counters.add('too_late', history.late.forget(unit.id, end_ms - rules.point_every_ms));
+        history.rewindPoints.forget(unit, end_ms);
+        if (aside_ms !== null)
+          history.rewindPoints.forgetAfter(unit.id, aside_ms, newest_ms - reach_ms);
+        counters.add('too_late', history.late.forget(unit.id, end_ms));
       });
     }
   }

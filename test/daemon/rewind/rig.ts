@@ -30,6 +30,8 @@ export interface RigOptions {
   readonly units?: readonly UnitDefinition[];
   readonly late?: Partial<NonNullable<ReturnType<typeof smallSite>['late']>>;
   readonly checkpoint_every_s?: number;
+  /** Where the machine's clock stands at the start [ms]. */
+  readonly now_ms?: number;
   /** Who answers hours where a unit's clock strikes; without, they are computed at once. */
   readonly questions?: HoursOnStrokeOptions['questions'];
 }
@@ -60,6 +62,7 @@ export class Rig {
 
   constructor(options: RigOptions = {}) {
     this.folder = options.folder ?? temporaryFolder('rewind');
+    this.now_ms = options.now_ms ?? 0;
     const core = options.core ?? fakeCore;
     const units = options.units ?? [smallUnit()];
     const late = { ...LATE, ...options.late };

@@ -179,7 +179,7 @@ export class EdgeSession {
       return 'sparkplug_births';
     }
     if (kind === 'DDEATH') {
-      if (part) this.end(part, payloadTime(payload) ?? arrival_ms, 'dead');
+      if (part) this.end(part, payloadTime(payload) ?? arrival_ms, 'dead', arrival_ms);
       return 'sparkplug_deaths';
     }
     if (part?.life === 'dead') return 'sparkplug_after_death';
@@ -234,7 +234,7 @@ export class EdgeSession {
         'sparkplug_not_in_birth',
         `${where}: its birth names no metric ${known.channel.metric}`,
       );
-      this.makeMissing(known, payloadTime(payload) ?? arrival_ms);
+      this.makeMissing(known, payloadTime(payload) ?? arrival_ms, arrival_ms);
     }
   }
 
@@ -273,6 +273,7 @@ export class EdgeSession {
       return;
     }
     const isExceptional = routed.definition.reporting.kind === 'by_exception';
+    this.forgetAhead(known, arrival_ms);
     if (isBirth && isExceptional && !isHistorical) {
       // A birth comes after the death before it, also by a clock that is behind rockhour's.
       time_ms = Math.max(time_ms, payload_ms ?? time_ms, known.newest_ms);
@@ -289,15 +290,23 @@ export class EdgeSession {
     known.newest_ms = Math.max(known.newest_ms, time_ms);
   }
 
-  private end(part: Part, time_ms: number, life: Life): void {
+  /** What was heard by clocks that were ahead, this machine's too, holds up nothing either once they are right. */
+  private forgetAhead(known: Known, now_ms: number): void {
+    const { newest_ms } = known;
+    if (isFuture({ time_ms: newest_ms, arrival_ms: now_ms }, this.hooks.future_tolerance_ms))
+      known.newest_ms = Number.NEGATIVE_INFINITY;
+  }
+
+  private end(part: Part, time_ms: number, life: Life, now_ms = time_ms): void {
     part.life = life;
     part.aliases = new Map();
-    for (const known of part.byMetric.values()) this.makeMissing(known, time_ms);
+    for (const known of part.byMetric.values()) this.makeMissing(known, time_ms, now_ms);
   }
 
   /** A bad reading, which ends holding. Not before the newest: what is older than that changes nothing. */
-  private makeMissing(known: Known, time_ms: number): void {
+  private makeMissing(known: Known, time_ms: number, now_ms: number): void {
     if (known.isMissing) return;
+    this.forgetAhead(known, now_ms);
     known.isMissing = true;
     this.hooks.count('sparkplug_made_missing');
     this.read(known, Math.max(time_ms, known.newest_ms), Number.NaN, 'bad');

@@ -203,6 +203,22 @@ describe('deaths', () => {
     expect(news()).toContain('tt@60000=579.15 good');
   });
 
+  it('and births go by clocks that are right again, after those of node and machine were ahead', () => {
+    const { receive, news, edge, clock } = born();
+    const ahead = 3650 * 86_400_000;
+    clock.ms = T0 + ahead;
+    receive(edge.data('Bed', T0 + ahead, [byAlias(12, 310), byAlias(13, 4)]));
+    news();
+    clock.ms = T0 + 60_000;
+    receive(edge.data('Bed', T0 + 60_000, [byAlias(13, 5)]));
+    expect(news()).toEqual(['e@60000=5 good']);
+    clock.ms = T0 + 90_000;
+    receive(edge.deviceDeath('Bed', T0 + 90_000));
+    expect(news()).toEqual(['p', 'tt', 'e', 'valve'].map((id) => `${id}@90000=NaN bad`));
+    receive(edge.deviceBirth('Bed', T0 + 91_000, BED(306)));
+    expect(news()).toContain('tt@91000=579.15 good');
+  });
+
   it('end what stands also where this machine has lost its date', () => {
     const { receive, news, edge, clock } = harness2000();
     receive(edge.birth(T0, [mode('charge')]));
