@@ -10,6 +10,8 @@ const properties = { sessionExpiryInterval: 86_400, receiveMaximum: 2048 };
 const client = connect(url, {
   clientId: 'bare',
   clean: false,
+  // As rockhour's link: no trace of each packet.
+  log: () => {},
   resubscribe: false,
   protocolVersion: Number(protocol),
   ...(protocol === '5' ? { properties } : {}),
