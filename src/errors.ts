@@ -192,6 +192,8 @@ export function fileReasonOf(thrown: unknown): string {
 /** Credentials by their form: in addresses and queries, in headers, tokens of rockhour itself. */
 const CREDENTIALS: readonly (readonly [RegExp, string])[] = [
   // Of bounded length: else a long word would be looked at from each of its letters to its end.
+  // A password with / or @ as they are: to the last @ of the word, rather too much than too little.
+  [/([a-z][a-z0-9+.-]{0,30}:\/\/)[^\s/@:"']{1,100}:[^\s"']{1,300}@/gi, '$1***@'],
   [/([a-z][a-z0-9+.-]{0,30}:\/\/)[^\s/@]+@/gi, '$1***@'],
   [/([?&](?:p|password|token|secret)=)[^&\s"']+/gi, '$1***'],
   [/\b(Bearer|Basic) +[\w+/=.~-]{8,}/gi, '$1 ***'],
