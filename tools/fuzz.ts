@@ -96,7 +96,10 @@ try {
       done[kind] += count;
       writeFileSync(file, JSON.stringify(done));
       looks.push((await ground.metrics()).resident_MB);
-      console.error(`${done[kind]} ${kind}, ${looks.at(-1)!.toFixed(0)} MB`);
+      const kept = heaps.at(-1)!.toFixed(1);
+      console.error(
+        `${done[kind]} ${kind}, ${looks.at(-1)!.toFixed(0)} MB, heap at least ${kept} MB`,
+      );
     }
     const s = (performance.now() - begun) / 1000;
     console.log(
