@@ -60,6 +60,8 @@ function rolledUp(rig: Rig): unknown[] {
 
 /** Of now: what stands in the future is left out. */
 const present = (rig: Rig) => rig.estimates().filter(({ time }) => Date.parse(time) < START + DAY);
+const scansTold = (rig: Rig) =>
+  rig.estimates().map(({ time }) => Math.floor(Date.parse(time) / PERIOD_MS));
 const health = (rig: Rig) =>
   unitHealth(rig.runner, undefined, { now: () => rig.now_ms, speed: 1 }, 0).detail;
 
@@ -356,6 +358,62 @@ describe('what is no such thing', () => {
     await stored.take(late.filter(({ time_ms }) => time_ms < timeOf(20)));
     await stored.take(scans(400, 410));
     expect(stored.runner.clocks.aside_ms).toBeNull();
+  });
+
+  it('both clocks set back by years for days: what a unit has told and learned stays', async () => {
+    const rig = await started();
+    await rig.take(scans(0, 3100));
+    const told = rig.estimates();
+    await rig.take(scans(3100, 6050, -700 * DAY));
+    expect(rig.counters.get('clock_returns')).toBe(0);
+    expect(rig.estimates().slice(0, told.length)).toEqual(told);
+    rig.now_ms = 0;
+    await rig.take(scans(6050, 6060));
+    const without = await started();
+    await without.take([...scans(0, 3100), ...scans(6050, 6060)]);
+    expect(rig.runner.snapshot()).toEqual(without.runner.snapshot());
+    expect(rig.estimates()).toEqual(without.estimates());
+  });
+
+  it('and a unit that was begun anew of late takes back no more than it has told since', async () => {
+    const first = await started();
+    await first.take(scans(0, 20));
+    await first.take(scans(6000, 6010));
+    const { now_ms } = first;
+    rigs.splice(rigs.indexOf(first), 1)[0]!.stop();
+    const database = new Database(join(first.folder, 'history.sqlite'));
+    database.exec('DELETE FROM checkpoints; DELETE FROM rewind_points;');
+    database.close();
+    const rig = await started({ folder: first.folder, now_ms });
+    const begun = timeOf(6000, 0);
+    const before = rig.estimates().filter(({ time }) => Date.parse(time) < begun);
+    expect(before.length).toBeGreaterThanOrEqual(20);
+    expect(rig.estimates().length).toBeGreaterThan(before.length);
+    await live(rig, scans(6010, 6040, -700 * DAY));
+    expect(rig.counters.get('clock_returns')).toBe(1);
+    expect(rig.history.estimates.between('u', START, begun, 1e6)).toEqual(before);
+    expect(rig.history.estimates.between('u', begun, 8.64e15, 1e6)).toEqual([]);
+  });
+
+  it('an outage before clocks come ahead by a little less: the unit goes back to after it', async () => {
+    const rig = await started();
+    const sound = [...scans(0, 40), ...scans(300, 420)];
+    await live(rig, [...sound, ...scans(420, 423, 2 * HOUR), ...scans(423, 440)]);
+    const without = await started();
+    await live(without, [...sound, ...scans(423, 440)]);
+    expect(rig.counters.get('clock_returns')).toBe(1);
+    expect(rig.estimates()).toEqual(without.estimates());
+    expect(rig.runner.snapshot()).toEqual(without.runner.snapshot());
+  });
+
+  it('an outage before clocks that are set back by much more than it', async () => {
+    const rig = await started();
+    await live(rig, [...scans(0, 40), ...scans(220, 520)]);
+    const told = scansTold(rig);
+    await live(rig, scans(520, 530, -3 * HOUR));
+    // What comes late by as much has a gap to go into, and changes what was told since.
+    expect(rig.counters.all()).toMatchObject({ clock_returns: 0, clock_back: 0, late: 30 });
+    expect(scansTold(rig).slice(0, told.length)).toEqual(told);
   });
 
   it('an outage of three hours: the state of before is let go after a day', async () => {
