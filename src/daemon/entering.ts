@@ -143,6 +143,11 @@ export class Entering {
     );
   }
 
+  /** What units have gone back from is in the history still: nothing may be saved of them before it goes. */
+  get isToTakeBack(): boolean {
+    return this.backFrom.size > 0;
+  }
+
   /** So much waits to be stored that no more may be added. */
   get isFull(): boolean {
     return this.waiting.length >= MOST_WAITING;
@@ -220,14 +225,19 @@ export class Entering {
     const checkpoint = runner.checkpoint();
     const isToWrite = this.waiting.length > 0 || this.backFrom.size > 0;
     if (!checkpoint || (isToWrite && !this.retry())) return;
+    const { id } = runner.unit;
     try {
-      history.write(() => {
-        this.writeLate(runner.unit.id);
+      const told = history.write(() => {
+        this.writeLate(id);
         history.checkpoints.add(runner.unit, checkpoint);
         runner.unsaved = false;
         if (last && runner.view.profile) history.profiles.add(runner.view.profile, true);
+        // A restart from here knows of no alarm that is of before the unit went back.
+        return this.aligned(runner, new Date(checkpoint.time_ms).toISOString());
       });
-      this.unnoted.delete(runner.unit.id);
+      this.unnoted.delete(id);
+      this.unaligned.delete(id);
+      for (const one of told) this.options.event(one);
     } catch (thrown) {
       this.storeFailed('history_failures', thrown);
     }

@@ -2,6 +2,8 @@ import { join } from 'node:path';
 import Database from 'better-sqlite3';
 import fc from 'fast-check';
 import { describe, expect, it } from 'vitest';
+import { storeFailure } from '../../../src/adapters/history/database.js';
+import { History } from '../../../src/adapters/history/history.js';
 import type { JournalReading } from '../../../src/adapters/history/journal.js';
 import type { UnitDefinition } from '../../../src/core/definitions.js';
 import type { WatchEvent } from '../../../src/core/watch/event.js';
@@ -181,6 +183,58 @@ describe('clocks of plant and machine that were ahead together', () => {
     expect(rig.runner.newest_ms).toBe(timeOf(59));
   });
 
+  it.each([
+    ['recovers', null],
+    ['recovers after a kill', 52],
+    ['recovers after a stop', -52],
+  ])('are gone back from also where the disk is full just then and %s', async (_, cut) => {
+    const all = [...scans(0, 40), ...scans(40, 43, 2 * HOUR), ...scans(43, 80)];
+    let rig = await started();
+    await live(rig, all.slice(0, 3 * 44));
+    const { history } = rig;
+    history.write = () => {
+      throw storeFailure('writing', new Error('full'));
+    };
+    await live(rig, all.slice(3 * 44, 3 * 52));
+    expect(rig.counters.get('clock_returns')).toBe(1);
+    expect(rig.counters.get('history_failures')).toBeGreaterThan(0);
+    if (cut !== null) rig = await restarted(rig, cut > 0);
+    else history.write = History.prototype.write;
+    await live(rig, all.slice(3 * 52));
+    const without = await started();
+    await live(without, [...scans(0, 40), ...scans(43, 80)]);
+    expect(rig.estimates()).toEqual(without.estimates());
+    expect(rolledUp(rig)).toEqual(rolledUp(without));
+    expect(rig.runner.snapshot()).toEqual(without.runner.snapshot());
+  });
+
+  it('come to the same where the disk is full just then and a late reading is taken in first', async () => {
+    const isLate = ({ channel, time_ms }: JournalReading) =>
+      channel === 'b' && time_ms === timeOf(20, 101);
+    const all = [...scans(0, 40), ...scans(40, 43, 2 * HOUR), ...scans(43, 52)];
+    const late = scans(20, 21).filter(isLate);
+    const rig = await started();
+    const { history } = rig;
+    const soon = all.filter((one) => !isLate(one));
+    await live(rig, soon.slice(0, -9 * 3));
+    history.write = () => {
+      throw storeFailure('writing', new Error('full'));
+    };
+    await live(rig, soon.slice(-9 * 3));
+    await rig.take(late.map((one) => ({ ...one, arrival_ms: timeOf(51, 500) })));
+    history.write = History.prototype.write;
+    await rig.settle();
+    expect(rig.counters.all()).toMatchObject({ clock_returns: 1, rewinds: 1 });
+    const again = await restarted(rig, true);
+    await live(again, scans(52, 60));
+    const without = await started();
+    await live(without, [...scans(0, 40), ...scans(43, 60)]);
+    expect(again.estimates().map(({ time }) => time)).toEqual(
+      without.estimates().map(({ time }) => time),
+    );
+    expect(again.runner.snapshot()).toEqual(without.runner.snapshot());
+  });
+
   it('come to the same over any restarts and kills', async () => {
     const stretch = fc.record({
       length: fc.integer({ min: 1, max: 30 }),
@@ -305,6 +359,30 @@ describe('clocks of plant and machine that were ahead together', () => {
       transition: 'returned',
       message: 'By clocks that are right again, it does not hold now.',
     });
+  });
+
+  it('leave none standing either where the disk is full just then and the daemon stops', async () => {
+    const core = raisingAbove(1000);
+    const rig = await started({ core });
+    await live(rig, scans(0, 40));
+    await live(
+      rig,
+      scans(40, 43, 2 * HOUR).map((one) => ({ ...one, value: 2000 })),
+    );
+    await live(rig, scans(43, 45));
+    const { history, folder, now_ms, steady_ms } = rig;
+    history.write = () => {
+      throw storeFailure('writing', new Error('full'));
+    };
+    await live(rig, scans(45, 52));
+    expect(rig.counters.get('clock_returns')).toBe(1);
+    history.write = History.prototype.write;
+    expect(history.alarms.active('u')).toHaveLength(1);
+    rigs.splice(rigs.indexOf(rig), 1)[0]!.stop();
+    const again = await started({ core, folder, now_ms });
+    again.steady_ms = steady_ms;
+    await live(again, scans(52, 60));
+    expect(again.history.alarms.active('u')).toEqual([]);
   });
 });
 
