@@ -12,6 +12,7 @@ import { SparkplugHost } from './adapters/mqtt/sparkplug/host.js';
 import { readSource, type SiteSource } from './config/load.js';
 import type { SiteConfig } from './config/site.js';
 import type { WatchEvent } from './core/watch/event.js';
+import { AgeClock } from './daemon/ageClock.js';
 import { AlarmPart, DEFAULT_ALARMS } from './daemon/alarmPart.js';
 import { Backups } from './daemon/backups.js';
 import { catchUp } from './daemon/catchUp.js';
@@ -250,8 +251,13 @@ class RockhourDaemon implements Daemon {
     });
     const counted = () => performance.now();
     this.steps = clock.isWall ? new ClockSteps(clock, counted, { counters, notices }) : null;
-    const newest_ms = () =>
-      Math.max(...[...this.runners.values()].map((one) => one.sure_ms ?? -Infinity));
+    const ages = new AgeClock({
+      ...{ history, clock, counted },
+      newest_ms: () =>
+        Math.max(...[...this.runners.values()].map((one) => one.sure_ms ?? -Infinity)),
+      failed: (thrown) => entering.storeFailed('history_failures', thrown),
+    });
+    const newest_ms = () => ages.now();
     this.store = new StorePart({
       ...{ ...common, site, newest_ms },
       trouble: () => (this.intake.stuck ? 'the journal refuses readings' : entering.trouble),

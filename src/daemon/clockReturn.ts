@@ -10,11 +10,17 @@ const AFRESH_LEAD_MS = 48 * 3_600_000;
 /** What has to come by the clocks of now before a unit goes back: time [ms] and scans begun. */
 const LEAST_TIME_MS = 60_000;
 const LEAST_SCANS = 3;
-/** A unit begins anew once as many scans have begun as its state has, but no more than of so long [ms]. */
+/**
+ * A unit begins anew once as many scans have begun as its state has: what it has told by clocks that
+ * may have been right goes then. Where it is known to have come ahead by about as much as it stands
+ * ahead, no more than of so long [ms].
+ */
 const LONGEST_DOUBT_MS = 86_400_000;
+/** What a state counts of which it is not known: it has run for long. */
+const MANY_SCANS = 1e12;
 /** Scans of which readings are kept meanwhile, the newest. */
 const MOST_KEPT_SCANS = 40;
-/** A lead is that of a jump ahead where it is no less than this share of it, or by this less [ms]. */
+/** A lead is that of a jump ahead where one is no less than this share of the other, or by this less [ms]. */
 const LIKE_JUMP = 0.9;
 const LIKE_JUMP_MS = 600_000;
 /** A state is put aside for as long as the jump was, within these [ms of scans]. */
@@ -48,6 +54,8 @@ export interface Stretch {
   readonly through_seq: number;
   /** Newest source time before it [ms]; null: the unit was begun anew. */
   readonly before_ms: number | null;
+  /** Source time of the first scan of the state that was left, where the unit was begun anew [ms]. */
+  readonly begun_ms: number | null;
   /** How far ahead it came, and where the machine's clock stood when it was found [ms]. */
   readonly ahead_ms: number;
   readonly found_ms: number;
@@ -62,9 +70,20 @@ interface Doubt {
   readonly index: number;
 }
 
+/** Where the time of a unit began that its state has lived through. */
+interface Begun {
+  /** Its first entry, and the begin of its first scan [ms]. */
+  readonly seq: number;
+  readonly time_ms: number;
+}
+
 /** Structured-cloneable. */
 export interface ClockReturnState {
   readonly scans: number;
+  /** null, or absent in what was saved before it was told: not known. */
+  readonly begun?: Begun | null;
+  /** By how much the unit came ahead at once when a state was put aside that was let go since [ms]. */
+  readonly once_ms?: number | null;
   readonly heard_ms: number | null;
   readonly leaptAt: number | null;
   readonly doubt: Doubt | null;
@@ -91,6 +110,8 @@ export interface WentBack {
  */
 export class ClockReturn {
   private scans = 0;
+  private begun: Begun | null = null;
+  private once_ms: number | null = null;
   /** When the newest entry came, by this machine's clock [ms]. */
   private heard_ms: number | null = null;
   /** Scans taken in when entries began to come much later than those before: it was set, or stood still. */
@@ -150,17 +171,19 @@ export class ClockReturn {
     if (this.leaptAt !== null && since(this.leaptAt) >= ASIDE_MS.least) this.leaptAt = null;
     if (this.aside === null) return;
     const { scans, jump_ms } = this.aside;
-    if (since(scans) >= Math.min(Math.max(ASIDE_MS.least, jump_ms), ASIDE_MS.most))
-      this.aside = null;
+    if (since(scans) < Math.min(Math.max(ASIDE_MS.least, jump_ms), ASIDE_MS.most)) return;
+    this.aside = null;
+    this.once_ms = Math.max(jump_ms, this.once_ms ?? 0);
   }
 
   /**
    * Whether a reading comes so far ahead of all before it, by a machine's clock that has come ahead as
-   * well, that the state is to be put aside; of several such that of the furthest is.
+   * well, that the state is to be put aside; of several such that of the furthest is, and the newer of two
+   * that are alike: an outage that was as long must not stand for it.
    */
   isJump(reading: Reading, newest_ms: number): boolean {
     if (this.leaptAt === null || isFuture(reading, this.future_tolerance_ms)) return false;
-    return believedTime(reading) - newest_ms > Math.max(LEAST_LEAD_MS, this.ahead_ms);
+    return believedTime(reading) - newest_ms > Math.max(LEAST_LEAD_MS, leastLike(this.ahead_ms));
   }
 
   /** Puts the state of before an entry aside. */
@@ -177,7 +200,10 @@ export class ClockReturn {
    */
   look(reading: Numbered, newest_ms: number | null): 'own' | 'kept' | WentBack {
     const { time_ms, arrival_ms } = reading;
-    if (newest_ms === null) return 'own';
+    if (newest_ms === null) {
+      this.begin([reading]);
+      return 'own';
+    }
     const lead_ms = newest_ms - arrival_ms;
     if (lead_ms <= LEAST_LEAD_MS) {
       // The clocks are where the unit stands, again or still.
@@ -190,7 +216,7 @@ export class ClockReturn {
     const back = this.backFrom(arrival_ms, lead_ms);
     if (!isLive || (back === undefined && lead_ms <= AFRESH_LEAD_MS)) return 'own';
     this.keep(reading);
-    return this.isSure(back) ? this.goBack(back, newest_ms, reading) : 'kept';
+    return this.isSure(back, lead_ms) ? this.goBack(back, newest_ms, reading) : 'kept';
   }
 
   /** The next reading that has waited and is to be taken in. */
@@ -208,15 +234,17 @@ export class ClockReturn {
 
   /** @param whole with the state that is put aside, which may be as large as the unit's own */
   save(whole: boolean): ClockReturnState {
-    const { scans, heard_ms, leaptAt, doubt, kept, queue, known } = this;
+    const { scans, begun, once_ms, heard_ms, leaptAt, doubt, kept, queue, known } = this;
     const aside = this.aside && { ...this.aside, packed: whole ? this.aside.packed : null };
     const lists = { kept: [...kept], queue: [...queue], stretches: [...known] };
-    return { scans, heard_ms, leaptAt, doubt, aside, ...lists };
+    return { scans, begun, once_ms, heard_ms, leaptAt, doubt, aside, ...lists };
   }
 
   /** @param state absent in what was saved before it was told: of a unit that has run for long */
   restore(state: ClockReturnState | undefined): void {
-    this.scans = state?.scans ?? this.mostScans;
+    this.scans = state?.scans ?? MANY_SCANS;
+    this.begun = state?.begun ?? null;
+    this.once_ms = state?.once_ms ?? null;
     this.heard_ms = state?.heard_ms ?? null;
     this.leaptAt = state?.leaptAt ?? null;
     this.doubt = state?.doubt ?? null;
@@ -224,6 +252,13 @@ export class ClockReturn {
     this.kept = [...(state?.kept ?? [])];
     this.queue = [...(state?.queue ?? [])];
     this.known = [...(state?.stretches ?? [])];
+  }
+
+  /** What was learned in a state of another definition is taken over: it is as old as that one. */
+  takeOver(state: ClockReturnState | undefined): void {
+    this.scans += state?.scans ?? MANY_SCANS;
+    this.begun = state?.begun ?? null;
+    this.once_ms = state?.aside?.jump_ms ?? state?.once_ms ?? null;
   }
 
   /** Of a runner that goes behind another of this unit: it leaves out what that one has put aside. */
@@ -235,14 +270,24 @@ export class ClockReturn {
   /** A state of another journal: numbers tell nothing. */
   forget(): void {
     const none = { doubt: null, aside: null, kept: [], queue: [], stretches: [] };
-    this.restore({ scans: this.scans, heard_ms: null, leaptAt: null, ...none });
+    const { scans, once_ms } = this;
+    const begun = this.begun && { ...this.begun, seq: 0 };
+    this.restore({ scans, begun, once_ms, heard_ms: null, leaptAt: null, ...none });
   }
 
   /** Sources that were silent come ahead as well: clocks that are right again go back by about as much. */
   private backFrom(now_ms: number, lead_ms: number): Aside | undefined {
     const { aside } = this;
     if (!aside?.packed || aside.newest_ms > now_ms + this.future_tolerance_ms) return undefined;
-    return lead_ms >= LIKE_JUMP * aside.jump_ms - LIKE_JUMP_MS ? aside : undefined;
+    return isLike(lead_ms, aside.jump_ms) ? aside : undefined;
+  }
+
+  /** A state begins with these readings, by the order in which they came. */
+  private begin(readings: readonly Numbered[]): void {
+    const period_ms = this.unit.scan_period_s * 1000;
+    const times = readings.map(({ time_ms, arrival_ms }) => Math.min(time_ms, arrival_ms));
+    const time_ms = Math.floor(Math.min(...times) / period_ms) * period_ms;
+    this.begun = { seq: readings[0]!.seq, time_ms };
   }
 
   private keep(reading: Numbered): void {
@@ -260,12 +305,14 @@ export class ClockReturn {
     this.kept = [];
   }
 
-  private isSure(back: Aside | undefined): boolean {
+  private isSure(back: Aside | undefined, lead_ms: number): boolean {
     const { doubt, kept } = this;
     if (doubt === null || kept.length < this.unit.channels.length / 2) return false;
     if (kept.at(-1)!.arrival_ms - doubt.since_ms < LEAST_TIME_MS) return false;
-    const asOld = Math.min(Math.max(LEAST_SCANS, this.scans), this.mostScans);
-    return doubt.scans >= (back ? LEAST_SCANS : asOld);
+    if (back) return doubt.scans >= LEAST_SCANS;
+    if (this.once_ms !== null && isLike(lead_ms, this.once_ms) && doubt.scans >= this.mostScans)
+      return true;
+    return doubt.scans >= Math.max(LEAST_SCANS, this.scans);
   }
 
   private get mostScans(): number {
@@ -274,13 +321,18 @@ export class ClockReturn {
 
   private goBack(back: Aside | undefined, ahead_ms: number, last: Numbered): WentBack {
     const stretch = {
-      from_seq: back?.seq ?? 0,
+      from_seq: back?.seq ?? this.begun?.seq ?? 0,
       back_seq: this.kept[0]!.seq,
       through_seq: last.seq,
       before_ms: back?.newest_ms ?? null,
+      begun_ms: this.begun?.time_ms ?? null,
       ...{ ahead_ms, found_ms: last.arrival_ms },
     };
     this.queue = this.kept;
+    if (!back) {
+      this.begin(this.queue);
+      this.once_ms = null;
+    }
     this.endDoubt();
     this.scans = back?.scans ?? 0;
     this.leaptAt = null;
@@ -296,9 +348,19 @@ function isOfStretch(stretch: Stretch, seq: number, time_ms: number): boolean {
   return time_ms > stretch.found_ms + LEAST_LEAD_MS;
 }
 
-/** Source time behind which nothing holds that was told by clocks that were ahead [ms]. */
-export function voidAfter({ before_ms, found_ms }: Stretch): number {
-  return before_ms ?? found_ms + LEAST_LEAD_MS;
+/** The least lead that is like a jump [ms]. */
+const leastLike = (jump_ms: number) => LIKE_JUMP * jump_ms - LIKE_JUMP_MS;
+
+function isLike(lead_ms: number, jump_ms: number): boolean {
+  return lead_ms >= leastLike(jump_ms) && jump_ms >= leastLike(lead_ms);
+}
+
+/**
+ * Source time behind which nothing holds that was told by clocks that were ahead [ms]. What was told
+ * before the state that was left had begun is none of it.
+ */
+export function voidAfter({ before_ms, begun_ms, found_ms }: Stretch): number {
+  return before_ms ?? Math.max(found_ms + LEAST_LEAD_MS, (begun_ms ?? found_ms) - 1);
 }
 
 /** For log and health. */

@@ -36,6 +36,13 @@ export interface EnteringOptions {
   alarmsMoved(unit: string): void;
 }
 
+/** What a unit has gone back from: saved within a span of the journal, told of after a source time [ms]. */
+interface BackFrom {
+  readonly from_seq: number;
+  readonly through_seq: number;
+  readonly after_ms: number;
+}
+
 /** What comes out of units goes into the history: estimates, events, states, and what came late. */
 export class Entering {
   private readonly nextCheckpoint = new Map<string, number>();
@@ -48,7 +55,7 @@ export class Entering {
   private unstored: WatchEvent[] = [];
 
   /** What units have gone back from and the history still has. */
-  private readonly backFrom = new Map<string, Stretch>();
+  private readonly backFrom = new Map<string, BackFrom>();
   /** Units whose alarms are of before they went back. */
   private readonly unaligned = new Set<string>();
 
@@ -97,10 +104,15 @@ export class Entering {
     this.nextCheckpoint.delete(unit.id);
     this.nextPoint.delete(unit.id);
     // A second one, while the history cannot be written, goes back no further than what came of the first.
-    const { from_seq, before_ms } = this.backFrom.get(unit.id) ?? stretch;
-    this.backFrom.set(unit.id, { ...stretch, from_seq, before_ms });
-    this.unaligned.add(unit.id);
+    const { from_seq, through_seq } = stretch;
     const after_ms = voidAfter(stretch);
+    const before = this.backFrom.get(unit.id) ?? { from_seq, after_ms };
+    this.backFrom.set(unit.id, {
+      from_seq: Math.min(from_seq, before.from_seq),
+      through_seq,
+      after_ms: Math.min(after_ms, before.after_ms),
+    });
+    this.unaligned.add(unit.id);
     this.waiting = this.waiting.filter(
       ({ runner, step }) => runner.unit !== unit || step.closed.scan.time_ms <= after_ms,
     );
@@ -113,9 +125,9 @@ export class Entering {
   private takeBack(): number {
     const { history } = this.options;
     let estimates = 0;
-    for (const [unit, stretch] of this.backFrom) {
-      history.rewindPoints.forgetSaved(unit, stretch.from_seq, stretch.through_seq);
-      estimates += history.takeBack(unit, voidAfter(stretch));
+    for (const [unit, { from_seq, through_seq, after_ms }] of this.backFrom) {
+      history.rewindPoints.forgetSaved(unit, from_seq, through_seq);
+      estimates += history.takeBack(unit, after_ms);
     }
     return estimates;
   }
@@ -129,6 +141,11 @@ export class Entering {
     return hindsight(active, runner.standing, time, 'clocks that are right again').filter((one) =>
       history.events.add(one),
     );
+  }
+
+  /** What units have gone back from is in the history still: nothing may be saved of them before it goes. */
+  get isToTakeBack(): boolean {
+    return this.backFrom.size > 0;
   }
 
   /** So much waits to be stored that no more may be added. */
@@ -208,14 +225,19 @@ export class Entering {
     const checkpoint = runner.checkpoint();
     const isToWrite = this.waiting.length > 0 || this.backFrom.size > 0;
     if (!checkpoint || (isToWrite && !this.retry())) return;
+    const { id } = runner.unit;
     try {
-      history.write(() => {
-        this.writeLate(runner.unit.id);
+      const told = history.write(() => {
+        this.writeLate(id);
         history.checkpoints.add(runner.unit, checkpoint);
         runner.unsaved = false;
         if (last && runner.view.profile) history.profiles.add(runner.view.profile, true);
+        // A restart from here knows of no alarm that is of before the unit went back.
+        return this.aligned(runner, new Date(checkpoint.time_ms).toISOString());
       });
-      this.unnoted.delete(runner.unit.id);
+      this.unnoted.delete(id);
+      this.unaligned.delete(id);
+      for (const one of told) this.options.event(one);
     } catch (thrown) {
       this.storeFailed('history_failures', thrown);
     }

@@ -23,7 +23,7 @@ export interface HousekeepingOptions {
   readonly steps: ClockSteps | null;
   /** Cursor of the forwarder; Infinity where there is none. */
   forwarded(): number;
-  /** Newest source time of all units [ms]; -Infinity before the first. */
+  /** Newest source time of all units, as far as it is trusted [ms]; -Infinity before the first. */
   newest_ms(): number;
 }
 

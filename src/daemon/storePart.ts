@@ -25,7 +25,7 @@ export interface StorePartOptions {
   retry(): void;
   /** Cursor of the forwarder; Infinity where there is none. */
   forwarded(): number;
-  /** Newest source time of all units [ms]; -Infinity before the first. */
+  /** Newest source time of all units, as far as it is trusted [ms]; -Infinity before the first. */
   newest_ms(): number;
   /** An event that is new. */
   event(event: WatchEvent): void;

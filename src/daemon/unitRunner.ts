@@ -434,6 +434,7 @@ export class UnitRunner {
     alignWatch(state.watch, new Set(standing.map(({ kind, subject }) => `${kind}/${subject}`)));
     this.state = state;
     this.raised = byId(standing);
+    this.clocks.takeOver(image.clocks);
     this.unsaved = true;
   }
 

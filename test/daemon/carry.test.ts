@@ -6,6 +6,7 @@ import type { UnitDefinition } from '../../src/core/definitions.js';
 import type { UnitState } from '../../src/core/unit.js';
 import { watchEvent } from '../../src/core/watch/kinds.js';
 import { SteadyClock } from '../../src/daemon/clock.js';
+import type { ClockReturnState } from '../../src/daemon/clockReturn.js';
 import { realCore } from '../../src/daemon/core.js';
 import { Counters } from '../../src/daemon/counters.js';
 import { unitHealth } from '../../src/daemon/health.js';
@@ -160,6 +161,24 @@ describe('a changed store', () => {
     restoreRunner(next, place);
     expect(next.lost).toEqual([]);
     expect(stateOf(next)).toEqual(stateOf(runner));
+  });
+
+  it('makes the unit no younger: clocks that are set back do not begin it anew the sooner', () => {
+    const { place } = worked();
+    let before: unknown;
+    rewrite(place, (image) => {
+      const { clocks } = image as unknown as { clocks: ClockReturnState };
+      before = clocks.begun;
+      Object.assign(clocks, { scans: 1_000_000 });
+    });
+    const runner = runnerOf(changed);
+    restoreRunner(runner, place);
+    append(place, SAVED_AT, SAVED_AT + 3);
+    workOff(runner, place);
+    const { scans, begun } = runner.clocks.save(true);
+    expect(scans).toBeGreaterThan(1_000_000);
+    expect(begun).toEqual(before);
+    expect(begun).toMatchObject({ time_ms: T });
   });
 
   it('costs everything where the saved state does not tell its definition, and says so', () => {

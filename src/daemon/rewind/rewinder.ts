@@ -172,6 +172,8 @@ export class Rewinder {
     if (!this.running || this.job || this.timer) return;
     const { runners, steady, rules, entering, backlog } = this.options;
     if (backlog() > MOST_BEHIND) return;
+    // The state that a rewind saves would be behind it: a restart from there would leave it for ever.
+    if (entering.isToTakeBack && !entering.retry()) return;
     const given = this.given.shift();
     if (given) {
       this.job = {

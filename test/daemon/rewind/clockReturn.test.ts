@@ -2,6 +2,8 @@ import { join } from 'node:path';
 import Database from 'better-sqlite3';
 import fc from 'fast-check';
 import { describe, expect, it } from 'vitest';
+import { storeFailure } from '../../../src/adapters/history/database.js';
+import { History } from '../../../src/adapters/history/history.js';
 import type { JournalReading } from '../../../src/adapters/history/journal.js';
 import type { UnitDefinition } from '../../../src/core/definitions.js';
 import type { WatchEvent } from '../../../src/core/watch/event.js';
@@ -60,6 +62,8 @@ function rolledUp(rig: Rig): unknown[] {
 
 /** Of now: what stands in the future is left out. */
 const present = (rig: Rig) => rig.estimates().filter(({ time }) => Date.parse(time) < START + DAY);
+const scansTold = (rig: Rig) =>
+  rig.estimates().map(({ time }) => Math.floor(Date.parse(time) / PERIOD_MS));
 const health = (rig: Rig) =>
   unitHealth(rig.runner, undefined, { now: () => rig.now_ms, speed: 1 }, 0).detail;
 
@@ -177,6 +181,58 @@ describe('clocks of plant and machine that were ahead together', () => {
     await live(rig, scans(46, 60));
     expect(rig.counters.get('clock_returns')).toBe(1);
     expect(rig.runner.newest_ms).toBe(timeOf(59));
+  });
+
+  it.each([
+    ['recovers', null],
+    ['recovers after a kill', 52],
+    ['recovers after a stop', -52],
+  ])('are gone back from also where the disk is full just then and %s', async (_, cut) => {
+    const all = [...scans(0, 40), ...scans(40, 43, 2 * HOUR), ...scans(43, 80)];
+    let rig = await started();
+    await live(rig, all.slice(0, 3 * 44));
+    const { history } = rig;
+    history.write = () => {
+      throw storeFailure('writing', new Error('full'));
+    };
+    await live(rig, all.slice(3 * 44, 3 * 52));
+    expect(rig.counters.get('clock_returns')).toBe(1);
+    expect(rig.counters.get('history_failures')).toBeGreaterThan(0);
+    if (cut !== null) rig = await restarted(rig, cut > 0);
+    else history.write = History.prototype.write;
+    await live(rig, all.slice(3 * 52));
+    const without = await started();
+    await live(without, [...scans(0, 40), ...scans(43, 80)]);
+    expect(rig.estimates()).toEqual(without.estimates());
+    expect(rolledUp(rig)).toEqual(rolledUp(without));
+    expect(rig.runner.snapshot()).toEqual(without.runner.snapshot());
+  });
+
+  it('come to the same where the disk is full just then and a late reading is taken in first', async () => {
+    const isLate = ({ channel, time_ms }: JournalReading) =>
+      channel === 'b' && time_ms === timeOf(20, 101);
+    const all = [...scans(0, 40), ...scans(40, 43, 2 * HOUR), ...scans(43, 52)];
+    const late = scans(20, 21).filter(isLate);
+    const rig = await started();
+    const { history } = rig;
+    const soon = all.filter((one) => !isLate(one));
+    await live(rig, soon.slice(0, -9 * 3));
+    history.write = () => {
+      throw storeFailure('writing', new Error('full'));
+    };
+    await live(rig, soon.slice(-9 * 3));
+    await rig.take(late.map((one) => ({ ...one, arrival_ms: timeOf(51, 500) })));
+    history.write = History.prototype.write;
+    await rig.settle();
+    expect(rig.counters.all()).toMatchObject({ clock_returns: 1, rewinds: 1 });
+    const again = await restarted(rig, true);
+    await live(again, scans(52, 60));
+    const without = await started();
+    await live(without, [...scans(0, 40), ...scans(43, 60)]);
+    expect(again.estimates().map(({ time }) => time)).toEqual(
+      without.estimates().map(({ time }) => time),
+    );
+    expect(again.runner.snapshot()).toEqual(without.runner.snapshot());
   });
 
   it('come to the same over any restarts and kills', async () => {
@@ -304,6 +360,30 @@ describe('clocks of plant and machine that were ahead together', () => {
       message: 'By clocks that are right again, it does not hold now.',
     });
   });
+
+  it('leave none standing either where the disk is full just then and the daemon stops', async () => {
+    const core = raisingAbove(1000);
+    const rig = await started({ core });
+    await live(rig, scans(0, 40));
+    await live(
+      rig,
+      scans(40, 43, 2 * HOUR).map((one) => ({ ...one, value: 2000 })),
+    );
+    await live(rig, scans(43, 45));
+    const { history, folder, now_ms, steady_ms } = rig;
+    history.write = () => {
+      throw storeFailure('writing', new Error('full'));
+    };
+    await live(rig, scans(45, 52));
+    expect(rig.counters.get('clock_returns')).toBe(1);
+    history.write = History.prototype.write;
+    expect(history.alarms.active('u')).toHaveLength(1);
+    rigs.splice(rigs.indexOf(rig), 1)[0]!.stop();
+    const again = await started({ core, folder, now_ms });
+    again.steady_ms = steady_ms;
+    await live(again, scans(52, 60));
+    expect(again.history.alarms.active('u')).toEqual([]);
+  });
 });
 
 describe('what is no such thing', () => {
@@ -356,6 +436,62 @@ describe('what is no such thing', () => {
     await stored.take(late.filter(({ time_ms }) => time_ms < timeOf(20)));
     await stored.take(scans(400, 410));
     expect(stored.runner.clocks.aside_ms).toBeNull();
+  });
+
+  it('both clocks set back by years for days: what a unit has told and learned stays', async () => {
+    const rig = await started();
+    await rig.take(scans(0, 3100));
+    const told = rig.estimates();
+    await rig.take(scans(3100, 6050, -700 * DAY));
+    expect(rig.counters.get('clock_returns')).toBe(0);
+    expect(rig.estimates().slice(0, told.length)).toEqual(told);
+    rig.now_ms = 0;
+    await rig.take(scans(6050, 6060));
+    const without = await started();
+    await without.take([...scans(0, 3100), ...scans(6050, 6060)]);
+    expect(rig.runner.snapshot()).toEqual(without.runner.snapshot());
+    expect(rig.estimates()).toEqual(without.estimates());
+  });
+
+  it('and a unit that was begun anew of late takes back no more than it has told since', async () => {
+    const first = await started();
+    await first.take(scans(0, 20));
+    await first.take(scans(6000, 6010));
+    const { now_ms } = first;
+    rigs.splice(rigs.indexOf(first), 1)[0]!.stop();
+    const database = new Database(join(first.folder, 'history.sqlite'));
+    database.exec('DELETE FROM checkpoints; DELETE FROM rewind_points;');
+    database.close();
+    const rig = await started({ folder: first.folder, now_ms });
+    const begun = timeOf(6000, 0);
+    const before = rig.estimates().filter(({ time }) => Date.parse(time) < begun);
+    expect(before.length).toBeGreaterThanOrEqual(20);
+    expect(rig.estimates().length).toBeGreaterThan(before.length);
+    await live(rig, scans(6010, 6040, -700 * DAY));
+    expect(rig.counters.get('clock_returns')).toBe(1);
+    expect(rig.history.estimates.between('u', START, begun, 1e6)).toEqual(before);
+    expect(rig.history.estimates.between('u', begun, 8.64e15, 1e6)).toEqual([]);
+  });
+
+  it('an outage before clocks come ahead by a little less: the unit goes back to after it', async () => {
+    const rig = await started();
+    const sound = [...scans(0, 40), ...scans(300, 420)];
+    await live(rig, [...sound, ...scans(420, 423, 2 * HOUR), ...scans(423, 440)]);
+    const without = await started();
+    await live(without, [...sound, ...scans(423, 440)]);
+    expect(rig.counters.get('clock_returns')).toBe(1);
+    expect(rig.estimates()).toEqual(without.estimates());
+    expect(rig.runner.snapshot()).toEqual(without.runner.snapshot());
+  });
+
+  it('an outage before clocks that are set back by much more than it', async () => {
+    const rig = await started();
+    await live(rig, [...scans(0, 40), ...scans(220, 520)]);
+    const told = scansTold(rig);
+    await live(rig, scans(520, 530, -3 * HOUR));
+    // What comes late by as much has a gap to go into, and changes what was told since.
+    expect(rig.counters.all()).toMatchObject({ clock_returns: 0, clock_back: 0, late: 30 });
+    expect(scansTold(rig).slice(0, told.length)).toEqual(told);
   });
 
   it('an outage of three hours: the state of before is let go after a day', async () => {

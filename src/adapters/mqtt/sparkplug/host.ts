@@ -46,8 +46,8 @@ interface Node {
 interface Unheard {
   /** When the broker was lost [ms since 1970]. */
   readonly lost_ms: number;
-  /** Since when it might have been heard, and is to be asked again, by the steady clock [ms]. */
-  readonly since_ms: number;
+  /** Since when it might have been heard, and is to be asked again, by the steady clock, losses left out [ms]. */
+  since_ms: number;
   askAgain_ms: number;
 }
 
@@ -148,12 +148,14 @@ export class SparkplugHost {
   linkUp(): void {
     const { now, steady } = this.options;
     const lost_ms = this.lost?.time_ms ?? now();
-    this.lost = null;
     const since_ms = steady();
+    const away_ms = this.lost === null ? 0 : since_ms - this.lost.since_ms;
+    this.lost = null;
     for (const [key, node] of this.nodes) {
-      // A link that comes and goes does not begin it anew.
-      if (node.session.isAlive)
-        node.unheard ??= { lost_ms, since_ms, askAgain_ms: since_ms + ASK_UNHEARD_MS };
+      // A link that comes and goes does not begin it anew; while it is away nothing can be heard.
+      if (node.unheard) node.unheard.since_ms += away_ms;
+      else if (node.session.isAlive)
+        node.unheard = { lost_ms, since_ms, askAgain_ms: since_ms + ASK_UNHEARD_MS };
       this.want(key);
     }
   }
@@ -192,7 +194,7 @@ export class SparkplugHost {
     const steady_ms = steady();
     for (const { session } of this.nodes.values()) session.tick(now(), steady_ms);
     for (const node of this.nodes.values()) {
-      this.lookForUnheard(node, steady_ms);
+      if (this.lost === null) this.lookForUnheard(node, steady_ms);
       this.ask(node);
     }
     const found = this.takeFound();

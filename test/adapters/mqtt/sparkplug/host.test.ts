@@ -337,7 +337,22 @@ describe('a node that is not heard after the broker was lost for less than a min
     }
   });
 
-  it('is not heard by what the broker sends once more, and a second loss gives it no more time', () => {
+  it('is not taken for dead while the broker is away again, nor for what it could not be heard then', () => {
+    const { receive, edge, news, host, go, back, counts } = afterAnOutage();
+    go(back + 30_000);
+    host.linkDown();
+    go(back + UNHEARD_MS + 10_000);
+    expect(news()).toEqual([]);
+    host.linkUp();
+    go(back + UNHEARD_MS + 20_000);
+    receive(edge.birth(T0 + back + UNHEARD_MS + 20_000, [mode('charge')]));
+    receive(edge.deviceBirth('Bed', T0 + back + UNHEARD_MS + 20_000, BED()));
+    go(back + 5 * UNHEARD_MS);
+    expect(counts.sparkplug_unheard_nodes).toBeUndefined();
+    expect(news().filter((line) => line.includes('bad'))).toEqual([]);
+  });
+
+  it('is not heard by what the broker sends once more, and a second loss does not begin it anew', () => {
     const { receive, edge, news, host, go, back, counts } = afterAnOutage();
     receive(edge.data('Bed', T0 + 9000, [byAlias(12, 310)]), { duplicate: true });
     news();
@@ -345,9 +360,11 @@ describe('a node that is not heard after the broker was lost for less than a min
     host.linkDown();
     go(back + 40_000);
     host.linkUp();
-    go(back + UNHEARD_MS);
+    go(back + UNHEARD_MS + 9000);
+    expect(counts.sparkplug_unheard_nodes).toBeUndefined();
+    go(back + UNHEARD_MS + 10_000);
     expect(counts.sparkplug_unheard_nodes).toBe(1);
-    expect(news()).toHaveLength(5);
+    expect(news()).toEqual(['mode', 'p', 'tt', 'e', 'valve'].map((id) => `${id}@10000=NaN bad`));
   });
 });
 
