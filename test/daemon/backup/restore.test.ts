@@ -45,6 +45,11 @@ function scans(from: number, to: number, unit = 'u', lift = 0): JournalReading[]
 }
 
 const runnerOf = (rig: Rig, unit = 'u') => rig.runners.get(unit)!;
+/** A backup may be of another journal: by which entry its state began is not known then. */
+const withoutNumbers = (image: unknown): unknown => {
+  const { clocks, ...rest } = image as { clocks: { begun: object } };
+  return { ...rest, clocks: { ...clocks, begun: { ...clocks.begun, seq: 0 } } };
+};
 const imageOf = (rig: Rig, unit = 'u') => runnerOf(rig, unit).checkpoint()!.image;
 
 describe('a backup that is put back', () => {
@@ -61,7 +66,10 @@ describe('a backup that is put back', () => {
     const told = rig.told.length;
     const answer = await backups.restore(runnerOf(rig), file, 'ada');
     expect(answer).toMatchObject({ accepted: true, same_shape: true, reaches: true, lost: [] });
-    expect({ image: imageOf(rig), seq: runnerOf(rig).seq }).toEqual(own);
+    expect({ image: imageOf(rig), seq: runnerOf(rig).seq }).toEqual({
+      ...own,
+      image: withoutNumbers(own.image),
+    });
     expect(imageOf(rig, 'v')).toEqual(other);
     // Made again to the same: no estimate has another revision, nothing is told twice.
     expect(rig.estimates()).toEqual(before);
@@ -102,7 +110,7 @@ describe('a backup that is put back', () => {
     expect(imageOf(rig)).not.toEqual(right);
     const answer = await backups.restore(runnerOf(rig), file, 'ada');
     expect(answer).toMatchObject({ accepted: true, record: { revision: 2, scans: 40 } });
-    expect(imageOf(rig)).toEqual(right);
+    expect(imageOf(rig)).toEqual(withoutNumbers(right));
     const bare = (list: typeof estimates) =>
       list.slice(41).map(({ revision: _, dispatch: __, ...rest }) => rest);
     expect(bare(rig.estimates())).toEqual(bare(estimates));

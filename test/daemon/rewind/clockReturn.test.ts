@@ -5,6 +5,7 @@ import { describe, expect, it } from 'vitest';
 import { storeFailure } from '../../../src/adapters/history/database.js';
 import { History } from '../../../src/adapters/history/history.js';
 import type { JournalReading } from '../../../src/adapters/history/journal.js';
+import { unpackImage } from '../../../src/adapters/history/thinImage.js';
 import type { UnitDefinition } from '../../../src/core/definitions.js';
 import type { WatchEvent } from '../../../src/core/watch/event.js';
 import type { Core } from '../../../src/daemon/core.js';
@@ -61,6 +62,18 @@ function rolledUp(rig: Rig): unknown[] {
 }
 
 /** Of now: what stands in the future is left out. */
+/**
+ * The checkpoint with the state put aside as it comes back: packed, a whole number is written as one or
+ * as a fraction, by how the engine happens to hold it.
+ */
+function opened(rig: Rig): unknown {
+  const checkpoint = structuredClone(rig.runner.checkpoint()) as {
+    image: { clocks: { aside: { packed: unknown } | null } };
+  };
+  const { aside } = checkpoint.image.clocks;
+  if (aside?.packed instanceof Uint8Array) aside.packed = unpackImage(Buffer.from(aside.packed));
+  return checkpoint;
+}
 const present = (rig: Rig) => rig.estimates().filter(({ time }) => Date.parse(time) < START + DAY);
 const scansTold = (rig: Rig) =>
   rig.estimates().map(({ time }) => Math.floor(Date.parse(time) / PERIOD_MS));
@@ -265,7 +278,7 @@ describe('clocks of plant and machine that were ahead together', () => {
         }
         await rig.take(all.slice(done));
         expect(rig.runner.snapshot()).toEqual(whole.runner.snapshot());
-        expect(rig.runner.checkpoint()).toEqual(whole.runner.checkpoint());
+        expect(opened(rig)).toStrictEqual(opened(whole));
         expect(rig.estimates()).toEqual(whole.estimates());
         expect(rolledUp(rig)).toEqual(rolledUp(whole));
       }),
