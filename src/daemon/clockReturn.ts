@@ -1,10 +1,9 @@
 import type { JournalEntry } from '../adapters/history/journal.js';
 import { packImage, unpackImage } from '../adapters/history/thinImage.js';
 import { believedTime, isFuture, LEAST_DATE_MS, type Reading } from '../core/scan/assemble.js';
+import { isOfStretch, LEAST_LEAD_MS, type Stretch } from './clockStretch.js';
 import type { RunnerImage } from './runnerImage.js';
 
-/** Sources that come further ahead at once than this may be of clocks that were set wrong [ms]. */
-export const LEAST_LEAD_MS = 3_600_000;
 /** Without a state to go back to, a unit that is no further ahead than this waits [ms]. */
 const AFRESH_LEAD_MS = 48 * 3_600_000;
 /** What has to come by the clocks of now before a unit goes back: time [ms] and scans begun. */
@@ -44,21 +43,6 @@ interface Aside {
   /** Entry that came ahead, and by how much [ms]. */
   readonly seq: number;
   readonly jump_ms: number;
-}
-
-/** A stretch of the journal that came by clocks that were ahead, and was put aside. */
-export interface Stretch {
-  /** Its first entry, the first that came by the right clocks, and that by which it was found. */
-  readonly from_seq: number;
-  readonly back_seq: number;
-  readonly through_seq: number;
-  /** Newest source time before it [ms]; null: the unit was begun anew. */
-  readonly before_ms: number | null;
-  /** Source time of the first scan of the state that was left, where the unit was begun anew [ms]. */
-  readonly begun_ms: number | null;
-  /** How far ahead it came, and where the machine's clock stood when it was found [ms]. */
-  readonly ahead_ms: number;
-  readonly found_ms: number;
 }
 
 /** What has come by the clocks of now while the unit stands ahead of them. */
@@ -226,10 +210,7 @@ export class ClockReturn {
 
   /** Whether something of the journal, reading or mark, is of a stretch that was put aside. */
   wasPutAside(entry: JournalEntry): boolean {
-    return this.known.some((stretch) => {
-      if (entry.seq < stretch.from_seq || entry.seq > stretch.through_seq) return false;
-      return entry.kind === 'close' || isOfStretch(stretch, entry.seq, entry.time_ms);
-    });
+    return this.known.some((stretch) => isOfStretch(stretch, entry));
   }
 
   /** @param whole with the state that is put aside, which may be as large as the unit's own */
@@ -343,32 +324,9 @@ export class ClockReturn {
   }
 }
 
-function isOfStretch(stretch: Stretch, seq: number, time_ms: number): boolean {
-  if (seq < stretch.back_seq) return time_ms > (stretch.before_ms ?? Number.NEGATIVE_INFINITY);
-  return time_ms > stretch.found_ms + LEAST_LEAD_MS;
-}
-
 /** The least lead that is like a jump [ms]. */
 const leastLike = (jump_ms: number) => LIKE_JUMP * jump_ms - LIKE_JUMP_MS;
 
 function isLike(lead_ms: number, jump_ms: number): boolean {
   return lead_ms >= leastLike(jump_ms) && jump_ms >= leastLike(lead_ms);
-}
-
-/**
- * Source time behind which nothing holds that was told by clocks that were ahead [ms]. What was told
- * before the state that was left had begun is none of it.
- */
-export function voidAfter({ before_ms, begun_ms, found_ms }: Stretch): number {
-  return before_ms ?? Math.max(found_ms + LEAST_LEAD_MS, (begun_ms ?? found_ms) - 1);
-}
-
-/** For log and health. */
-export function returnWords({ before_ms, ahead_ms, found_ms }: Stretch): string {
-  const [ahead, found] = [ahead_ms, found_ms].map((ms) => new Date(ms).toISOString());
-  const from =
-    before_ms === null
-      ? 'begun anew, as no state of before is there'
-      : `gone back to the state of ${new Date(before_ms).toISOString()}`;
-  return `clocks were ahead, at ${ahead}, and are right again, at ${found}: ${from}`;
 }

@@ -3,7 +3,7 @@ import type { LateReading } from '../adapters/history/lateReadings.js';
 import { isOfTheMachine, type WatchEvent } from '../core/watch/event.js';
 import { hindsight } from '../core/watch/hindsight.js';
 import { reasonOf } from '../errors.js';
-import { type Stretch, voidAfter } from './clockReturn.js';
+import { type Stretch, voidAfter } from './clockStretch.js';
 import type { Counters } from './counters.js';
 import type { Notices } from './notices.js';
 import type { RunnerStep, UnitRunner } from './unitRunner.js';

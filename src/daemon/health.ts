@@ -5,8 +5,8 @@ import type { EdgeNodeState } from '../adapters/mqtt/sparkplug/host.js';
 import type { LeftOutUnit } from '../config/site.js';
 import { LEAST_DATE_MS } from '../core/scan/assemble.js';
 import type { DaemonClock } from './clock.js';
-import { returnWords } from './clockReturn.js';
 import { type ClockStep, stepWords } from './clockSteps.js';
+import { returnWords } from './clockStretch.js';
 import { zoneWords } from './clockWords.js';
 import type { UnitRunner } from './unitRunner.js';
 

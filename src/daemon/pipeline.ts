@@ -4,7 +4,7 @@ import { isMachineDateless, type ReadingFate } from '../core/scan/assemble.js';
 import { reasonOf } from '../errors.js';
 import type { Log } from '../log.js';
 import type { DaemonClock, SteadyClock } from './clock.js';
-import { LEAST_LEAD_MS, returnWords } from './clockReturn.js';
+import { LEAST_LEAD_MS, returnWords } from './clockStretch.js';
 import { zoneWords } from './clockWords.js';
 import type { Counters } from './counters.js';
 import type { Entering } from './entering.js';

@@ -11,7 +11,10 @@ import { rockhour } from '../support/cli.js';
 
 describe('rockhour backup and restore', () => {
   it('take the state of a unit of the demonstration out of a running daemon and put it back', async () => {
-    const { path, folder } = siteFile({ mqtt: { embedded_port: 0 } });
+    // Scans so long that none is closed while the commands run, however slow the machine.
+    const { path, folder } = siteFile({ mqtt: { embedded_port: 0 } }, undefined, {
+      scan_period_s: 300,
+    });
     const site = loadSite(path);
     const [unit] = site.units as [(typeof site.units)[number]];
     const daemon = new RockhourProcess(['run', '--config', path]);
@@ -19,7 +22,7 @@ describe('rockhour backup and restore', () => {
     const client = await publisher(broker!);
     const roles = new Map(unit.channels.map(({ id, role }) => [id, role.kind]));
     const given = (id: string) => (roles.get(id) === 'thermocouple' ? 20 : 0);
-    const start = Date.now() - 600_000;
+    const start = Date.now() - 20 * unit.scan_period_s * 1000;
     const send = (scan: number) =>
       Promise.all(
         site.sources.map(({ topic, payload, channels }) => {
