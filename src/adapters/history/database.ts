@@ -35,12 +35,6 @@ function isFolder(path: string): boolean {
 }
 
 /**
- * Pages of a file that stay in memory at most [KiB]: half of what better-sqlite3 is built with. They
- * fill over two days of one unit, which reads as memory that grows; the rest is in the system's cache.
- */
-const CACHE_KB = 8000;
-
-/**
  * Opens (or makes) a database file in WAL mode and brings its schema up to date.
  * @throws RockhourError STORE_FAILED where the folder, the disk or the file is at fault
  */
@@ -51,7 +45,6 @@ export function openDatabase(file: string, durability: Durability, steps: Migrat
     database = new SQLite(file, { timeout: 2000 });
     database.pragma('journal_mode = WAL');
     database.pragma(`synchronous = ${durability === 'full' ? 'FULL' : 'NORMAL'}`);
-    database.pragma(`cache_size = -${CACHE_KB}`);
     migrate(database, file, steps);
     return database;
   } catch (thrown) {
