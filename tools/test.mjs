@@ -5,7 +5,7 @@ import { join } from 'node:path';
 
 const { setUp } = await import('./setup.mjs');
 const { build } = await import('./build.mjs');
-const { root, runPackage } = await import('./programs.mjs');
+const { root, runPackage, runPlain } = await import('./programs.mjs');
 
 await setUp({ build: false });
 
@@ -44,8 +44,8 @@ await packageStep('tests', 'vitest/vitest.mjs', ['run', ...reporters, ...process
   ROCKHOUR_TEST_BUILT: '1',
 });
 if (process.argv.length === 2) {
-  const score = ['tools/score.ts', '--quick', '--brief'];
-  await packageStep('quick score against the finer plant', 'tsx/dist/cli.mjs', score);
+  const score = () => runPlain('tools/score.ts', ['--quick', '--brief']);
+  await step('quick score against the finer plant', async () => (await score()) === 0);
 }
 
 /** Counts of Vitest; a file that did not even load is a failure of its own. */

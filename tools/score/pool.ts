@@ -9,6 +9,7 @@ export interface Answer<J> {
 }
 
 const SCORE = new URL('worker.ts', import.meta.url);
+const PLAIN = new URL('../plain.mjs', import.meta.url).href;
 
 /**
  * Runs jobs in some processes. A job that fails is told and counted; the others go on.
@@ -44,7 +45,7 @@ function work<J, H>(
   file: URL,
   done: (answer: Answer<J>) => void,
 ): Promise<void> {
-  const child: ChildProcess = fork(fileURLToPath(file), { execArgv: ['--import', 'tsx'] });
+  const child: ChildProcess = fork(fileURLToPath(file), { execArgv: ['--import', PLAIN] });
   return new Promise((resolve) => {
     let running: J | undefined;
     const next = () => {
