@@ -31,6 +31,7 @@ import {
   unitHealth,
   unreadyReasons,
 } from './daemon/health.js';
+import { boundHeapGrowth } from './daemon/heapGrowth.js';
 import { Hourly } from './daemon/hourly.js';
 import { HoursOnStroke } from './daemon/hoursOnStroke.js';
 import { Housekeeping } from './daemon/housekeeping.js';
@@ -92,6 +93,7 @@ export interface Daemon {
 
 /** Builds a daemon from a site; nothing acts before `start`. The one place where all meets. */
 export function createDaemon(site: SiteConfig, options: DaemonOptions): Daemon {
+  boundHeapGrowth();
   return new RockhourDaemon(site, options);
 }
 
