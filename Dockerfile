@@ -15,8 +15,8 @@ RUN npm run build && npm prune --omit=dev --no-audit --no-fund \
 FROM node:20-bookworm-slim
 # Memory of malloc and V8: less of it, see DEVELOPERS.md; the same in config/rockhour.service.
 ENV NODE_ENV=production \
-    MALLOC_ARENA_MAX=2 \
-    MALLOC_MMAP_THRESHOLD_=32768 \
+    MALLOC_ARENA_MAX=1 \
+    MALLOC_MMAP_THRESHOLD_=65536 \
     MALLOC_TRIM_THRESHOLD_=131072 \
     NODE_OPTIONS=--max-semi-space-size=8 \
     ROCKHOUR_HEALTH_URL=http://127.0.0.1:8080/api/live
