@@ -56,7 +56,8 @@ export type Judgement = 'use' | 'soften' | 'leave_out';
  *   beside it; drifting where the innovation grew by a third or more since the first of them, and by
  *   more than it had leapt at that first. Slow drift and an offset beyond the class are told by its
  *   usual deviation (see judgeUsual), and where a front never passes by what the filter had to take for
- *   the sensor's own (see judgeOwn).
+ *   the sensor's own (see judgeOwn). What rock unseen between thermocouples would explain is no fault,
+ *   unless the reading leapt there (see judgeReach).
  * - `wrong_type`: it was off, and reads what another type's table makes of the rock's temperature.
  * - `outlier`: three wild readings, each back within five scans, none more than an hour from the next.
  *
@@ -166,6 +167,11 @@ function judgeSound(memory: SensorMemory, evidence: SensorEvidence, innovation: 
     memory.inside_K = innovation;
     return within ? 'use' : 'soften';
   }
+  if (memory.outside === 0 && isUnseen(memory, evidence, innovation)) {
+    memory.inGas = 0;
+    memory.inside_K = innovation;
+    return 'soften';
+  }
   if (memory.outside === 0) memory.firstOutside_K = innovation;
   memory.outside++;
   const gas = evidence.topGas_K;
@@ -182,6 +188,20 @@ function judgeSound(memory: SensorMemory, evidence: SensorEvidence, innovation: 
     set(memory, hasGrown(memory, innovation) ? 'drifting' : 'offset', time_ms, text, innovation);
   }
   return 'leave_out';
+}
+
+/**
+ * True where rock that stands within the reach of what no other thermocouple sees (judgeReach) would
+ * read like this, and the reading came there step by step as a front does: it has not left what it last
+ * deviated by by more than the gate of two readings' noise.
+ */
+function isUnseen(memory: SensorMemory, evidence: SensorEvidence, innovation: number): boolean {
+  const { unseen_K, sigma_K, noiseSigma_K } = evidence;
+  if (unseen_K === undefined || noiseSigma_K === undefined) return false;
+  const beyond = Math.sign(innovation) * (innovation - unseen_K[innovation > 0 ? 1 : 0]);
+  if (!(beyond <= GATE_SIGMAS * sigma_K)) return false;
+  const leapt = Math.abs(innovation - memory.inside_K);
+  return !(leapt > GATE_SIGMAS * Math.SQRT2 * noiseSigma_K);
 }
 
 /**

@@ -139,6 +139,8 @@ export interface SensorEvidence {
   readonly rockSigma_K: number;
   /** What the errors of its place and its own share of the gas make there, one sigma [K]. */
   readonly placeSigma_K: number;
+  /** Coldest and hottest rock that may stand there unseen, less that estimated [K]; absent: none. */
+  readonly unseen_K?: readonly [number, number];
   /** Its own offset and place as learned; absent: not looked at. */
   readonly own?: Own;
   /** Prior sigma of an offset, and of one that a group shares [K]. */

@@ -26,12 +26,19 @@ const SOUND_S = 6 * 3600;
  * Offset o and place p that the filter has learned of a sensor, against what its class allows:
  *
  *   D^2 = (o/s_o)^2 + ((p - m)/s_p)^2,   s_o^2 = offset^2 + (gain (T - 0 degC))^2,
- *   s_p^2 = place^2 + (share (lag_charge + lag_discharge))^2,
+ *   s_p^2 = place^2 + (share (lag_charge + lag_discharge))^2 + unseen^2,
  *
  * m the median place of the believed ones of its string (a profile that is off there moves all alike),
- * or none, whichever makes it the less. A share of the gas that the junction sees shows as another place.
+ * or none, whichever makes it the less. A share of the gas that the junction sees shows as another place, and so does
+ * what the bed model lacks on the way from the next thermocouple (`unseen_m`, see judgeReach).
  */
-export function ownOf(model: StoreModel, state: StoreState, work: JudgeWork, c: Candidate): Own {
+export function ownOf(
+  model: StoreModel,
+  state: StoreState,
+  work: JudgeWork,
+  c: Candidate,
+  unseen_m = 0,
+): Own {
   const tube = model.tubes[c.tube] as TubeModel;
   const { offset_sigma_K, position_sigma_m } = tube.estimator;
   const memory = state.sensors[c.tube]?.[c.sensor] as SensorMemory;
@@ -39,7 +46,7 @@ export function ownOf(model: StoreModel, state: StoreState, work: JudgeWork, c: 
   const offset_K = ownState(model, state, c.tube, tube.layout.offset + c.sensor);
   const gain_K = Number.isFinite(c.rock_K) ? gainAt(c.rock_K) * (c.rock_K - 273.15) : 0;
   const reach_m = memory.reachCharge_m + memory.reachDischarge_m;
-  const sigma_m = Math.hypot(position_sigma_m, SHARE_SIGMA * reach_m);
+  const sigma_m = Math.hypot(position_sigma_m, SHARE_SIGMA * reach_m, unseen_m);
   const offsets = offset_K / Math.hypot(offset_sigma_K, gain_K);
   const alone = Math.hypot(offsets, place / sigma_m);
   // Few are that far off: the others are looked at for those alone.

@@ -12,6 +12,8 @@ import type { TubeModel, TubeScratch, TubeState } from './tube.js';
 export interface Candidate {
   readonly tube: number;
   readonly sensor: number;
+  /** Nominal place, from the charge inlet along the bed [m]. */
+  readonly position_m: number;
   /** The reading less the step of its group; NaN = missing. */
   value_K: number;
   readonly reading: ReadingModel;
@@ -75,6 +77,7 @@ export function judgeWork(model: StoreModel): JudgeWork {
     ({ tube, sensor, position_m }): Candidate => ({
       tube,
       sensor,
+      position_m,
       value_K: Number.NaN,
       reading: emptyReading((model.tubes[tube] as TubeModel).layout.cells),
       v: (model.scratch[tube] as TubeScratch).projections[sensor] as Float64Array,

@@ -7,13 +7,14 @@ import {
   type SensorMemory,
 } from './judge.js';
 import { ownOf } from './judgeOwn.js';
+import { ownReach, unseenRange, unseenReach } from './judgeReach.js';
 import { guessLeft } from './judgeStart.js';
 import { judgeSwaps } from './judgeSwap.js';
 import { type Candidate, innovation, type JudgeWork, SHARE_SIGMA } from './judgeWork.js';
 import type { AcceptedReading } from './readingUpdate.js';
 import { plausibleRange } from './storeStart.js';
 import type { StoreModel, StoreState } from './storeTracker.js';
-import type { TubeDrive, TubeModel } from './tube.js';
+import type { TubeDrive, TubeModel, TubeState } from './tube.js';
 
 export const memoryOf = (state: StoreState, c: Candidate): SensorMemory =>
   state.sensors[c.tube]?.[c.sensor] as SensorMemory;
@@ -34,6 +35,7 @@ export function judgeAll(
   for (const c of candidates) if (Number.isFinite(c.value_K)) present++;
   const judgements = candidates.map((c): Judgement => {
     const tube = model.tubes[c.tube] as TubeModel;
+    const reach_m = unseenReach(model, state, work, c);
     const evidence: SensorEvidence = {
       time_ms,
       dt_s: drive?.dt_s ?? 0,
@@ -48,7 +50,8 @@ export function judgeAll(
         tube.estimator.position_sigma_m * c.reading.slope_K_m,
         SHARE_SIGMA * gasApart(model, memoryOf(state, c), c, drive),
       ),
-      own: ownOf(model, state, work, c),
+      own: ownOf(model, state, work, c, ownReach(reach_m)),
+      unseen_K: unseenAround(model, state, c, reach_m),
       offsetSigma_K: tube.estimator.offset_sigma_K,
       groupSigma_K: tube.estimator.group_offset_sigma_K,
       deadband_K: model.deadbands_K[c.tube]?.[c.sensor] ?? 0,
@@ -77,6 +80,23 @@ export function judgeAll(
   });
   return accepted;
 }
+
+/** What the rock beside it may be by, unseen; looked at for the few that stand outside the gate. */
+function unseenAround(
+  model: StoreModel,
+  state: StoreState,
+  c: Candidate,
+  reach_m: number,
+): readonly [number, number] {
+  if (!(reach_m > 0) || !(Math.abs(innovation(c)) > GATE_SIGMAS * c.sigma_K)) return SEEN;
+  const tube = model.tubes[c.tube] as TubeModel;
+  const tubeState = state.tubes[c.tube] as TubeState;
+  const { layout } = tube;
+  const learned_m = tubeState.further[layout.position + c.sensor - layout.cells] as number;
+  return unseenRange(tube, tubeState, c.position_m + learned_m, reach_m);
+}
+
+const SEEN = [0, 0] as const;
 
 /**
  * How far the gas at a junction may be from its rock [K]: the rock a lag upstream, to first order, and

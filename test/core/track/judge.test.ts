@@ -78,6 +78,59 @@ describe('a sound sensor', () => {
   });
 });
 
+describe('a reading that rock unseen beside it would explain', () => {
+  const front = { unseen_K: [-3, 12], noiseSigma_K: 0.5 } as const;
+  const GATE_K = 4.5 * SIGMA;
+  const LEAP_K = 4.5 * Math.SQRT2 * front.noiseSigma_K;
+
+  it('is softened for as long as it stays within, where it came step by step', () => {
+    const { memory, scan, sound } = watched(front);
+    sound();
+    for (let off = 1; off < 12 + GATE_K; off++) {
+      expect(scan(500 + off)).toBe(off > GATE_K ? 'soften' : 'use');
+    }
+    for (let k = 0; k < 30; k++) expect(scan(516 + 0.1 * (k % 2))).toBe('soften');
+    expect(memory.verdict).toBeNull();
+  });
+
+  it('is named where it goes on beyond it, and on the side where no such rock is', () => {
+    const up = watched(front);
+    up.sound();
+    for (let off = 1; off <= 16; off++) up.scan(500 + off);
+    for (let k = 0; k < 5; k++) expect(up.scan(517 + k)).toBe('leave_out');
+    expect(up.memory.verdict).not.toBeNull();
+    const down = watched(front);
+    down.sound();
+    for (let off = 1; off <= 7; off++) down.scan(500 - off);
+    expect(down.memory.outside).toBe(0);
+    for (let off = 8; off <= 12; off++) down.scan(500 - off);
+    expect(down.memory.verdict).not.toBeNull();
+  });
+
+  it('is named where it leapt there: fronts do not', () => {
+    for (const side of [-1, 1]) {
+      const { memory, scan, sound } = watched({ ...front, unseen_K: [-20, 20] });
+      for (let k = 0; k < 9; k++) sound();
+      for (let k = 0; k < 5; k++) expect(scan(500 + side * 8)).toBe('leave_out');
+      expect(memory.verdict).toBe('offset');
+    }
+    const slow = watched({ ...front, unseen_K: [-20, 20] });
+    slow.sound();
+    const step_K = 0.9 * LEAP_K;
+    for (let off = step_K; off < 20; off += step_K) {
+      expect(slow.scan(500 + off)).toBe(off > GATE_K ? 'soften' : 'use');
+    }
+  });
+
+  it('is left out once it was found outside, until it is back inside the gate', () => {
+    const { scan, sound } = watched({ ...front, unseen_K: [-20, 20] });
+    sound();
+    expect(scan(508)).toBe('leave_out');
+    expect(scan(508.1)).toBe('leave_out');
+    expect(sound()).toBe('use');
+  });
+});
+
 describe('open', () => {
   it('is a reading that is missing while others of the store deliver', () => {
     const { memory, scan, sound, now_ms } = watched();

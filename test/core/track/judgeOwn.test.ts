@@ -32,7 +32,8 @@ function started() {
   const set = (index: number, value: number) => {
     state.tubes[0]!.further[index - layout.cells] = value;
   };
-  const own = (sensor: number) => ownOf(model, state, work, work.candidates[sensor]!);
+  const own = (sensor: number, unseen_m = 0) =>
+    ownOf(model, state, work, work.candidates[sensor]!, unseen_m);
   return { state, layout, estimator, set, own };
 }
 
@@ -50,6 +51,21 @@ describe('what the filter had to take for a sensor’s own', () => {
     expect(own(ODD).place_m).toBeCloseTo(-80 * estimator.position_sigma_m, 9);
     // Of both ways to see it the milder; the lag of the gas is in the sigma.
     expect(own(ODD).sigmas).toBeLessThanOrEqual(40.1);
+  });
+
+  it('is less where the profile is not seen on the way to the next one', () => {
+    const { layout, estimator, set, own } = started();
+    set(layout.offset + ODD, 0);
+    set(layout.position + ODD, 12 * estimator.position_sigma_m);
+    const seen = own(ODD).sigmas;
+    const unseen_m = 3 * estimator.position_sigma_m;
+    // Squares of the place's own sigma and of what is not seen add up.
+    const sigma_m = (12 * estimator.position_sigma_m) / seen;
+    expect(own(ODD, unseen_m).sigmas).toBeCloseTo(
+      (seen * sigma_m) / Math.hypot(sigma_m, unseen_m),
+      9,
+    );
+    expect(own(ODD, unseen_m).sigmas).toBeLessThan(seen / 1.2);
   });
 
   it('grows with offset and place alone, whatever both are', () => {
