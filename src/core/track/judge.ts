@@ -144,7 +144,10 @@ function judgeSound(memory: SensorMemory, evidence: SensorEvidence, innovation: 
     return 'leave_out';
   }
   // The junction has not yet followed the gas that no longer flows, or flows anew.
-  if (time_ms < memory.unsettled_ms) return 'leave_out';
+  if (time_ms < memory.unsettled_ms) {
+    if (!hasLeapt(memory, evidence, innovation)) noteInside(memory, evidence, innovation);
+    return 'leave_out';
+  }
   followUsual(memory, evidence);
   const supported = evidence.supported || time_ms < memory.doubt_ms;
   const fault = (supported ? null : usualFault(memory, evidence)) ?? ownFault(memory, evidence);
@@ -164,12 +167,12 @@ function judgeSound(memory: SensorMemory, evidence: SensorEvidence, innovation: 
     if (memory.verdict === 'outlier') return 'leave_out';
     memory.outside = 0;
     memory.inGas = 0;
-    memory.inside_K = innovation;
+    noteInside(memory, evidence, innovation);
     return within ? 'use' : 'soften';
   }
   if (memory.outside === 0 && isUnseen(memory, evidence, innovation)) {
     memory.inGas = 0;
-    memory.inside_K = innovation;
+    noteInside(memory, evidence, innovation);
     return 'soften';
   }
   if (memory.outside === 0) memory.firstOutside_K = innovation;
@@ -192,16 +195,31 @@ function judgeSound(memory: SensorMemory, evidence: SensorEvidence, innovation: 
 
 /**
  * True where rock that stands within the reach of what no other thermocouple sees (judgeReach) would
- * read like this, and the reading came there step by step as a front does: it has not left what it last
- * deviated by by more than the gate of two readings' noise.
+ * read like this, and the reading came there step by step, as a front does.
  */
 function isUnseen(memory: SensorMemory, evidence: SensorEvidence, innovation: number): boolean {
   const { unseen_K, sigma_K, noiseSigma_K } = evidence;
   if (unseen_K === undefined || noiseSigma_K === undefined) return false;
   const beyond = Math.sign(innovation) * (innovation - unseen_K[innovation > 0 ? 1 : 0]);
   if (!(beyond <= GATE_SIGMAS * sigma_K)) return false;
-  const leapt = Math.abs(innovation - memory.inside_K);
-  return !(leapt > GATE_SIGMAS * Math.SQRT2 * noiseSigma_K);
+  return !hasLeapt(memory, evidence, innovation);
+}
+
+/** What it deviated by and read when it was used, or when it was let settle and had not leapt. */
+function noteInside(memory: SensorMemory, { value_K }: SensorEvidence, innovation: number): void {
+  memory.inside_K = innovation;
+  memory.insideRead_K = value_K;
+}
+
+/**
+ * A sensor that steps takes its reading and its deviation along. Where the deviation alone has jumped,
+ * as at a change of the flow, the estimate has; where the reading alone has, the rock.
+ */
+function hasLeapt(memory: SensorMemory, evidence: SensorEvidence, innovation: number): boolean {
+  const { value_K, noiseSigma_K = Number.POSITIVE_INFINITY } = evidence;
+  const deviation = Math.abs(innovation - memory.inside_K);
+  const reading = Math.abs(value_K - (memory.insideRead_K ?? Number.NaN));
+  return Math.min(deviation, reading) > GATE_SIGMAS * Math.SQRT2 * noiseSigma_K;
 }
 
 /**

@@ -27,6 +27,8 @@ export interface SensorMemory extends Movement, Usual, Start {
   firstOutside_K: number;
   /** Innovation when it was last used [K], NaN where it was not since it was believed. */
   inside_K: number;
+  /** What it read then [K]; absent in older states. */
+  insideRead_K?: number;
   /** Scans in a row that a rejected sensor has looked sound. */
   sound: number;
   /** Times that the value changed since the verdict, capped at SOUND_SCANS. */
@@ -241,6 +243,7 @@ export function clear(memory: SensorMemory): void {
   memory.off_K = 0;
   memory.driftSide = 0;
   memory.inside_K = Number.NaN;
+  memory.insideRead_K = Number.NaN;
   memory.miswired = 0;
   memory.spikes = 0;
   memory.inGas = 0;
