@@ -122,6 +122,43 @@ describe('a reading that rock unseen beside it would explain', () => {
     }
   });
 
+  it('is named where reading and deviation leapt; not where one of them did alone', () => {
+    const wide = { ...front, unseen_K: [-20, 20] } as const;
+    // The flow stops: the prediction jumps, the junction reads on as before.
+    const estimate = watched(wide);
+    estimate.sound();
+    for (let k = 0; k < 9; k++) {
+      expect(estimate.scan(500 + 0.1 * (k % 2), { predicted_K: 510 })).toBe('soften');
+    }
+    expect(estimate.memory.verdict).toBeNull();
+    // Both jump, and it is the reading that went where the estimate did not.
+    const sensor = watched(wide);
+    sensor.sound();
+    for (let k = 0; k < 5; k++) {
+      expect(sensor.scan(508 + 0.1 * (k % 2), { predicted_K: 497 })).toBe('leave_out');
+    }
+    expect(sensor.memory.verdict).toBe('offset');
+  });
+
+  it('is followed while the junction settles after a change of the flow, unless it leaps', () => {
+    const wide = { ...front, unseen_K: [-20, 20] } as const;
+    for (const [leap_K, last] of [
+      [0, 'soften'],
+      [2 * LEAP_K, 'leave_out'],
+    ] as const) {
+      const { memory, scan, sound, now_ms } = watched(wide);
+      sound();
+      memory.unsettled_ms = now_ms() + 10 * SCAN_S * 1000;
+      let read_K = 500;
+      for (let k = 1; k < 10; k++) {
+        read_K += k === 5 ? leap_K : 0.4 * LEAP_K;
+        expect(scan(read_K)).toBe('leave_out');
+      }
+      expect(read_K - 500).toBeGreaterThan(2 * LEAP_K);
+      expect(scan(read_K + 0.1)).toBe(last);
+    }
+  });
+
   it('is left out once it was found outside, until it is back inside the gate', () => {
     const { scan, sound } = watched({ ...front, unseen_K: [-20, 20] });
     sound();
