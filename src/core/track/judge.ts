@@ -29,7 +29,7 @@ const STUCK_MIN_MOVE_K = 4;
 /** An unchanged reading is not used once the rock should have moved by this [K]. */
 const SUSPECT_MOVE_K = 1.5;
 /** A reading that repeats within this is unchanged: below the resolution of usual input cards. */
-const UNCHANGED_K = 0.01;
+export const UNCHANGED_K = 0.01;
 /** Wild readings within an hour of one another that make an outlier, and the least of them [K]. */
 const SPIKES = 3;
 const SPIKE_MS = 3600_000;

@@ -14,6 +14,8 @@ import {
 export interface Movement {
   /** Reading of the scan before [K]. */
   before_K: number;
+  /** By what the reading before it had changed [K]; NaN or absent: not known. */
+  came_K?: number;
   read_K: number;
   modelled_K: number;
   /** The same since the reading last leapt against the rock within one scan, as a fault does when it begins. */
@@ -53,11 +55,13 @@ export function followMovement(
     memory.read_K = memory.modelled_K = 0;
     memory.sinceRead_K = memory.sinceModelled_K = 0;
     memory.before_K = Number.NaN;
+    memory.came_K = Number.NaN;
     memory.unread_K = 0;
     return;
   }
   const keep = Math.exp(-evidence.dt_s / FADE_S);
   const step = evidence.predicted_K - memory.expected_K;
+  memory.came_K = evidence.value_K - memory.before_K;
   if (!Number.isFinite(evidence.value_K)) {
     memory.read_K *= keep;
     memory.modelled_K *= keep;

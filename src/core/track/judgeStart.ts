@@ -1,4 +1,4 @@
-import { GATE_SIGMAS } from './judge.js';
+import { GATE_SIGMAS, UNCHANGED_K } from './judge.js';
 import { isBelieved, type SensorMemory } from './judgeMemory.js';
 import { widen } from './judgeUndo.js';
 import { type Candidate, innovation, type JudgeWork } from './judgeWork.js';
@@ -21,6 +21,12 @@ export interface Start {
 
 /** What leaps by more than this share of what was guessed in one scan is the sensor, not a front. */
 const LEAP_SHARE = 0.1;
+/**
+ * A front comes step by step: where it goes less than this in a scan [m], a reading that changes by more
+ * than so many times what it did in the scan before, and than noise allows, is no front's.
+ */
+const ANNOUNCED_WAY_M = 0.05;
+const ANNOUNCED_TIMES = 3;
 /** So near to the entering gas it may have been left by the bed [K]. */
 const GAS_K = 8;
 
@@ -51,6 +57,7 @@ export function widenGuesses(
   let changed = false;
   // Other rock comes only with the gas.
   if (drive === null || drive.massFlux_kg_m2s === 0) return false;
+  const slow = travelOf(model, drive) < ANNOUNCED_WAY_M;
   for (const c of work.candidates) {
     const memory = state.sensors[c.tube]?.[c.sensor] as SensorMemory;
     const guess_m = guessLeft(memory, drive);
@@ -59,7 +66,8 @@ export function widenGuesses(
     const room = GATE_SIGMAS * c.sigma_K;
     if (!(off > room)) continue;
     const read = c.value_K;
-    const leap = Math.max(room, LEAP_SHARE * (memory.high_K - memory.low_K));
+    const most = LEAP_SHARE * (memory.high_K - memory.low_K);
+    const leap = Math.max(room, slow ? Math.min(most, announced(model, memory, c)) : most);
     // Right after the flow began nothing was used, and the rock went on meanwhile.
     const leapt = Number.isFinite(memory.before_K)
       ? Math.abs(read - memory.before_K) > leap
@@ -71,6 +79,28 @@ export function widenGuesses(
     changed = true;
   }
   return changed;
+}
+
+/** Way of a front in this scan, at the mid of the temperatures [m]. */
+function travelOf({ tables }: StoreModel, drive: TubeDrive): number {
+  const s = tables.segments >> 1;
+  return (
+    (Math.abs(drive.massFlux_kg_m2s) * drive.dt_s * (tables.fluidHeatCapacity[s] as number)) /
+    (tables.heatCapacity[s] as number)
+  );
+}
+
+/**
+ * What a reading may change by in this scan as that of the scan before announced it [K]. A value that was
+ * only repeated, as where a channel is slower than the scans, announces nothing.
+ */
+function announced(model: StoreModel, { came_K = 0 }: SensorMemory, c: Candidate): number {
+  const came = Math.abs(came_K);
+  const deadband_K = model.deadbands_K[c.tube]?.[c.sensor] ?? 0;
+  if (!(came > Math.max(UNCHANGED_K, deadband_K))) return Number.POSITIVE_INFINITY;
+  // Of two readings: part of what came before was no more than this.
+  const noise_K = Math.sqrt(2 * c.variance_K2);
+  return GATE_SIGMAS * noise_K + ANNOUNCED_TIMES * Math.max(0, came - noise_K);
 }
 
 /** Thermocouples as near as this to one another draw a front as it is: eight along the bed. */
@@ -92,11 +122,7 @@ export function followStart(
     return;
   }
   if (drive === null || drive.massFlux_kg_m2s === 0) return;
-  const { tables } = model;
-  const s = tables.segments >> 1;
-  const travel =
-    (Math.abs(drive.massFlux_kg_m2s) * drive.dt_s * (tables.fluidHeatCapacity[s] as number)) /
-    (tables.heatCapacity[s] as number);
+  const travel = travelOf(model, drive);
   const side = drive.massFlux_kg_m2s > 0 ? 'below_m' : 'above_m';
   for (const sensors of state.sensors) {
     for (const memory of sensors) memory[side] = Math.max(0, memory[side] - travel);

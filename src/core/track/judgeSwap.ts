@@ -17,10 +17,17 @@ const maySwap = ({ verdict }: SensorMemory): boolean =>
   verdict === 'drifting' ||
   verdict === 'swapped';
 
+/** The profile beside it is still that of its start on one side or both: its movement is a guess, too. */
+const isGuess = ({ below_m, above_m }: SensorMemory): boolean => Math.max(below_m, above_m) > 0;
+
+/** It has leapt against the rock within one scan; the sums forget that as they fade (see Movement). */
+const hasStepped = ({ read_K, sinceRead_K }: SensorMemory): boolean => read_K !== sinceRead_K;
+
 /**
  * Two thermocouples that were exchanged: each moves as the bed model moves the rock at the other's
  * place (see Movement), and not as at its own. Looked for in pairs of a string or of a card, among
- * those that stray; while a pair is suspected neither is used, after five scans both are named.
+ * those that stray, but for one that has stepped where the rock's movement is a guess: a step is the
+ * movement of any rock then. While a pair is suspected neither is used, after five scans both are named.
  *
  * @param suspects set to 1 for each candidate that is not to be used in this scan
  */
@@ -36,6 +43,7 @@ export function judgeSwaps(
     return (
       Number.isFinite((candidates[i] as Candidate).value_K) &&
       maySwap(memory) &&
+      !(isGuess(memory) && hasStepped(memory)) &&
       Math.abs(memory.read_K - memory.modelled_K) >= STRAYS_K
     );
   };
